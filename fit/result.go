@@ -1,0 +1,162 @@
+package fit
+
+import (
+	"encoding/json"
+	"math"
+)
+
+// Quantity is an estimated number with its three standard uncertainties
+// (k = 1). NaN in Value: it could not be had; NaN in an uncertainty: not known.
+// N is the number of points it rests on.
+type Quantity struct {
+	Value     float64 // SI unit of the field it stands in
+	U         float64 // within a session on the same meter and range: the random part only
+	UBetween  float64 // between sessions on one bench
+	UAbsolute float64 // against the SI unit: meter gain, R_L tolerance, burden included
+	N         int
+}
+
+// None is the quantity that could not be had.
+func None() Quantity {
+	return Quantity{Value: math.NaN(), U: math.NaN(), UBetween: math.NaN(), UAbsolute: math.NaN()}
+}
+
+// Ok reports whether the quantity has a value.
+func (q Quantity) Ok() bool { return !math.IsNaN(q.Value) }
+
+// MarshalJSON writes {"value","u","u_between","u_absolute","n"} with null where
+// there is no finite number.
+func (q Quantity) MarshalJSON() ([]byte, error) {
+	return json.Marshal(struct {
+		Value     *float64 `json:"value"`
+		U         *float64 `json:"u"`
+		UBetween  *float64 `json:"u_between"`
+		UAbsolute *float64 `json:"u_absolute"`
+		N         int      `json:"n"`
+	}{finite(q.Value), finite(q.U), finite(q.UBetween), finite(q.UAbsolute), q.N})
+}
+
+func finite(x float64) *float64 {
+	if math.IsNaN(x) || math.IsInf(x, 0) {
+		return nil
+	}
+	return &x
+}
+
+// State is what became of a device in a fit.
+type State string
+
+// The states. Above: the device never reaches the test current (or idle
+// current) within the sweep. Declined: there are readings but no number that
+// may be believed. Excluded is set by the lot, never by a fit.
+const (
+	Measured      State = "measured"
+	Above         State = "above"
+	Open          State = "open"
+	Shorted       State = "shorted"
+	WrongWayRound State = "wrong-way-round"
+	Declined      State = "declined"
+	Excluded      State = "excluded"
+)
+
+// Warning is something a reader must know about a number; Code is one of
+// [Codes].
+type Warning struct {
+	Code string `json:"code"`
+	Text string `json:"text"` // one sentence
+}
+
+// LeftOut is a point that a fit did not use.
+type LeftOut struct {
+	Index int    // of the curve's slices
+	Code  string // one of [Codes]
+	Text  string
+}
+
+// Result is what a fit says of one sweep, or of one device over its sweeps.
+// Voltages and currents carry the device's own signs: a p-channel part has
+// negative ones.
+type Result struct {
+	State State
+	Why   string // one sentence when State is not Measured
+
+	Vgsth   Quantity // V, gate voltage at the test current (constant current)
+	VgsIdle Quantity // V, gate voltage at the idle current
+	Vt      Quantity // V, extrapolated threshold by Method
+	Beta    Quantity // A/V², gain factor
+	Theta   Quantity // 1/V, mobility degradation
+	GmMax   Quantity // S
+	GmIdle  Quantity // S, at the idle current
+	Idss    Quantity // A, drain leakage: I_D at the off voltage
+
+	Method    string               // behind Vt: "sqrt", "linear", "ratio" or "curve"; "current" when there is no Vt
+	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
+	Crossings int                  // upward crossings of the test current
+	LeftOut   []LeftOut            // ascending by Index
+	Warnings  []Warning
+}
+
+// Threshold is one extrapolated threshold with the gain factor from the same line.
+type Threshold struct {
+	Vt   Quantity // V
+	Beta Quantity // A/V²
+	From int      // first point used, index of the cleaned curve
+	To   int      // one past the last
+}
+
+// NewResult is a result with nothing in it yet: every quantity [None].
+func NewResult() Result {
+	n := None()
+	return Result{Vgsth: n, VgsIdle: n, Vt: n, Beta: n, Theta: n, GmMax: n, GmIdle: n, Idss: n}
+}
+
+// Key names one quantity of a Result with its unit, as scripts see it.
+type Key string
+
+// The keys, in the order in which they are shown.
+const (
+	KeyVgsth   Key = "vgsth_V"
+	KeyVgsIdle Key = "vgs_idle_V"
+	KeyVt      Key = "vt_V"
+	KeyBeta    Key = "beta_A_per_V2"
+	KeyTheta   Key = "theta_per_V"
+	KeyGmMax   Key = "gm_max_S"
+	KeyGmIdle  Key = "gm_idle_S"
+	KeyIdss    Key = "idss_A"
+)
+
+// Keys lists all keys in their order.
+var Keys = []Key{KeyVgsth, KeyVgsIdle, KeyVt, KeyBeta, KeyTheta, KeyGmMax, KeyGmIdle, KeyIdss}
+
+// At returns a pointer to the quantity of that key, nil for an unknown key.
+func (r *Result) At(k Key) *Quantity {
+	switch k {
+	case KeyVgsth:
+		return &r.Vgsth
+	case KeyVgsIdle:
+		return &r.VgsIdle
+	case KeyVt:
+		return &r.Vt
+	case KeyBeta:
+		return &r.Beta
+	case KeyTheta:
+		return &r.Theta
+	case KeyGmMax:
+		return &r.GmMax
+	case KeyGmIdle:
+		return &r.GmIdle
+	case KeyIdss:
+		return &r.Idss
+	}
+	return nil
+}
+
+// Has reports whether a warning with that code is present.
+func (r *Result) Has(code string) bool {
+	for _, w := range r.Warnings {
+		if w.Code == code {
+			return true
+		}
+	}
+	return false
+}
