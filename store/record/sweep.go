@@ -112,7 +112,7 @@ type Instrument struct {
 	Role       string          `json:"role"` // "gate", "current", "load", "drain", "supply", "temperature"
 	Name       string          `json:"name"`
 	Serial     string          `json:"serial"`
-	Coverage   string          `json:"coverage"` // what the statement is: "limit" (rectangular), "k2", "99%"
+	Coverage   string          `json:"coverage"` // what the statement is: "limit" (rectangular), "k=2", "99 %"
 	Ranges     []RangeAccuracy `json:"ranges"`   // ascending by Top
 	Isolated   *bool           `json:"isolated"`
 	Calibrated string          `json:"calibrated"` // date, YYYY-MM-DD
