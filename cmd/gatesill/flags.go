@@ -1,0 +1,109 @@
+package main
+
+import (
+	"strings"
+
+	"github.com/spf13/pflag"
+
+	"gatesill/store/record"
+)
+
+// numFlag takes a number with its unit: --rl 4k7, --idle-current 250mA.
+type numFlag struct {
+	unit string
+	dst  *record.Num
+}
+
+func (f numFlag) String() string {
+	if f.dst == nil {
+		return ""
+	}
+	return f.dst.String()
+}
+func (f numFlag) Type() string { return f.unit }
+func (f numFlag) Set(text string) error {
+	x, err := record.ParseNumber(text, f.unit)
+	if err == nil {
+		*f.dst = record.Known(x)
+	}
+	return err
+}
+
+// num adds a flag for a number in a unit.
+func num(fs *pflag.FlagSet, dst *record.Num, name, unit, usage string) {
+	fs.Var(numFlag{unit, dst}, name, usage)
+}
+
+// shareFlag takes "1%" or a bare fraction.
+type shareFlag struct{ dst *record.Num }
+
+func (f shareFlag) String() string {
+	if f.dst == nil {
+		return ""
+	}
+	return f.dst.String()
+}
+func (f shareFlag) Type() string { return "%" }
+func (f shareFlag) Set(text string) error {
+	head, percent := strings.CutSuffix(strings.TrimSpace(text), "%")
+	x, err := record.ParseNumber(head, "")
+	if err != nil {
+		return err
+	}
+	if percent {
+		x /= 100
+	}
+	if x < 0 || x >= 1 {
+		return record.ErrInvalid
+	}
+	*f.dst = record.Known(x)
+	return nil
+}
+
+// choice takes one of some words.
+type choice struct {
+	dst     *string
+	allowed []string
+}
+
+func (f choice) String() string {
+	if f.dst == nil {
+		return ""
+	}
+	return *f.dst
+}
+func (f choice) Type() string { return strings.Join(f.allowed, "|") }
+func (f choice) Set(text string) error {
+	for _, a := range f.allowed {
+		if a == text {
+			*f.dst = text
+			return nil
+		}
+	}
+	return choiceError{f.allowed}
+}
+
+type choiceError struct{ allowed []string }
+
+func (e choiceError) Error() string { return "must be one of " + strings.Join(e.allowed, ", ") }
+
+// amountFlag takes a number in one of several units: --margin 50mV|10%|25mA.
+type amountFlag struct {
+	dst   *record.Amount
+	units []string
+}
+
+func (f amountFlag) String() string {
+	if f.dst == nil {
+		return ""
+	}
+	return f.dst.String()
+}
+func (f amountFlag) Type() string { return strings.Join(f.units, "|") }
+func (f amountFlag) Set(text string) error {
+	a, err := record.ParseAmount(text, f.units...)
+	if err == nil {
+		*f.dst = a
+	}
+	return err
+}

@@ -1,0 +1,96 @@
+package main
+
+import (
+	"strings"
+
+	"github.com/spf13/cobra"
+
+	"gatesill/cmd/internal/job"
+	"gatesill/store/record"
+)
+
+func importCmd(env *job.Env) *cobra.Command {
+	var rq job.ImportRequest
+	var columns, units []string
+	var circuit, ammeter, tempOf, channel string
+	g := &rq.Table.Given
+	cmd := &cobra.Command{
+		Use: "import LOT FILE...", Short: "Read curves or spot lists from files into a lot",
+		Long: `Reads CSV and other text tables into a lot: one long table with a device column,
+one gate column with a column per device, one file per device, or a list of V_GS
+at one current. Delimiter, decimal mark, units and columns are found once per
+file and printed; what stays open is asked on a terminal, else refused with the
+flag that settles it. Each file is stored whole or not at all. - is stdin.
+
+Without --circuit only constant-current values can be had.
+A file with a lot column gives LOT its own rows.`,
+		Example: `  gatesill import bag1 curves.csv --circuit load --rl 10 --vdd 12V
+  gatesill import bag1 D*.csv --circuit diode --temp 25C --bench attic.toml
+  gatesill import bag2 list.csv --spot-current 10mA --units vg=V
+  gatesill import bag3 odd.txt --map vg=2,id=U_R --decimal comma --dry-run`,
+		Args: between(2, -1),
+		RunE: func(cmd *cobra.Command, args []string) error {
+			rq.Lot, rq.Files, rq.Stdin = args[0], args[1:], cmd.InOrStdin()
+			g.Circuit, g.Ammeter, g.TempOf, rq.Channel = record.Circuit(circuit), ammeter, tempOf, record.Channel(channel)
+			rq.Table.SpotCurrent = g.SpotCurrent
+			var err error
+			if rq.Table.Map, err = pairs("map", "vg=COLUMN,id=COLUMN", columns); err != nil {
+				return err
+			}
+			if rq.Table.Units, err = pairs("units", "vg=V,id=mA", units); err != nil {
+				return err
+			}
+			if x, ok := g.RL.Get(); ok && x <= 0 {
+				return job.Usage("--rl 10", "--rl: %g ohm, must be above 0", x)
+			}
+			return job.Import(cmd.Context(), env, rq)
+		},
+		ValidArgsFunction: lots(env, false),
+	}
+	fs := cmd.Flags()
+	fs.SortFlags = false
+	fs.Var(choice{&circuit, []string{"load", "diode", "fixed"}}, "circuit", "drain fed through R_L, tied to the gate, or held")
+	num(fs, &g.RL, "rl", "ohm", "load resistor")
+	fs.Var(shareFlag{&g.RLTol}, "rl-tol", "tolerance of the load resistor: 1%")
+	num(fs, &g.VDD, "vdd", "V", "supply voltage")
+	num(fs, &g.VDS, "vds", "V", "drain voltage, where it is held")
+	num(fs, &g.Temp, "temp", "degC", "temperature: 25C")
+	fs.Var(choice{&tempOf, []string{"ambient", "sink", "case"}}, "temp-of", "what has that temperature")
+	fs.Var(choice{&ammeter, []string{"drain", "source", "none"}}, "ammeter", "where the ammeter sits")
+	fs.StringSliceVar(&columns, "map", nil, "columns by header or number: `vg=COLUMN,id=COLUMN,device=COLUMN`")
+	fs.StringSliceVar(&units, "units", nil, "units of columns: `vg=V,id=mA`")
+	fs.Var(choice{&rq.Table.Decimal, []string{"point", "comma"}}, "decimal", "decimal mark")
+	fs.StringVar(&rq.Table.Delimiter, "delimiter", "", "comma, semicolon, tab, pipe, blank or the `SIGN` itself")
+	fs.Var(choice{&rq.Table.Encoding, []string{"utf-8", "utf-16", "windows-1252"}}, "encoding", "text encoding")
+	num(fs, &g.SpotCurrent, "spot-current", "A", "current of a list of V_GS: 10mA")
+	fs.StringVar(&rq.Table.LotColumn, "lot-column", "", "column that names the lot: only the rows of LOT are taken")
+	fs.Var(choice{&channel, []string{"n", "p"}}, "channel", "channel of the lot's part")
+	fs.StringVar(&rq.Operator, "operator", "", "`NAME` of who measured")
+	fs.StringVar(&rq.Fixture, "fixture", "", "`NAME` of the fixture")
+	fs.StringVar(&rq.Session, "session", "", "`NAME` of the sitting")
+	fs.StringVar(&rq.Bench, "bench", "", "bench `FILE` with meters, accuracy and circuit (gatesill help bench-file)")
+	fs.BoolVar(&rq.Table.Strict, "strict", false, "refuse a file with any row refused")
+	fs.BoolVar(&rq.DryRun, "dry-run", false, "only tell what would be read")
+	fs.BoolVar(&rq.Again, "again", false, "read a file again that was imported before")
+	return cmd
+}
+
+// pairs reads name=value words of a flag.
+func pairs(flag, example string, words []string) (map[string]string, error) {
+	if len(words) == 0 {
+		return nil, nil
+	}
+	out := map[string]string{}
+	for _, w := range words {
+		k, v, ok := strings.Cut(w, "=")
+		k, v = strings.ToLower(strings.TrimSpace(k)), strings.TrimSpace(v)
+		if !ok || k == "" || v == "" {
+			return nil, job.Usage("--"+flag+" "+example, "--%s: %q is not of the form NAME=VALUE", flag, w)
+		}
+		if _, twice := out[k]; twice {
+			return nil, job.Usage("--"+flag+" "+example, "--%s: %s is given twice", flag, k)
+		}
+		out[k] = v
+	}
+	return out, nil
+}

@@ -1,0 +1,36 @@
+// Command gatesill reads gate-voltage, drain-current and load-voltage samples of
+// power and RF MOSFETs, keeps them by lot, and says at which gate voltage each
+// device turns on, which belong together and which do not belong.
+package main
+
+import (
+	"context"
+	"errors"
+	"os"
+	"os/signal"
+
+	"gatesill/cmd/internal/job"
+)
+
+func main() { os.Exit(run(os.Args[1:])) }
+
+// run runs one command line and gives its exit code.
+func run(args []string) int {
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
+	defer stop()
+	root := newRoot()
+	root.SetArgs(storeFirst(args))
+	err := root.ExecuteContext(ctx)
+	if err == nil {
+		return job.ExitDone
+	}
+	if ctx.Err() != nil {
+		return job.ExitInterrupted
+	}
+	job.WriteError(os.Stderr, err)
+	var f *job.Failure
+	if errors.As(err, &f) {
+		return f.Code
+	}
+	return job.ExitFailed
+}

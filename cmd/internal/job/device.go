@@ -1,0 +1,129 @@
+package job
+
+import (
+	"context"
+	"errors"
+	"strings"
+
+	"gatesill/report"
+	"gatesill/store"
+	"gatesill/store/record"
+)
+
+// deviceOf finds a device by name; lot "" looks in all lots and wants it to be
+// in one only.
+func deviceOf(tx *store.Tx, lot, name string) (record.Device, record.Lot, error) {
+	if lot != "" {
+		l, _, err := lotOf(tx, lot)
+		if err != nil {
+			return record.Device{}, l, err
+		}
+		d, err := tx.Device(l.ID, name)
+		if errors.Is(err, store.ErrNotFound) {
+			return d, l, failed("gatesill lot show "+Quote(lot)+" lists its devices", "device %q: not in lot %q", name, lot)
+		}
+		return d, l, err
+	}
+	ds, err := tx.FindDevices(name)
+	if err != nil {
+		return record.Device{}, record.Lot{}, err
+	}
+	lots, err := tx.Lots()
+	if err != nil {
+		return record.Device{}, record.Lot{}, err
+	}
+	byID := map[string]record.Lot{}
+	for _, l := range lots {
+		byID[l.ID] = l
+	}
+	switch len(ds) {
+	case 0:
+		return record.Device{}, record.Lot{}, failed("gatesill lot list shows the lots", "device %q: in no lot", name)
+	case 1:
+		return ds[0], byID[ds[0].LotID], nil
+	}
+	var names []string
+	for _, d := range ds {
+		names = append(names, Quote(byID[d.LotID].Name))
+	}
+	return record.Device{}, record.Lot{}, Usage("say which with --lot LOT", "device %q is in %d lots: %s", name, len(ds), strings.Join(names, ", "))
+}
+
+// DeviceShow shows history and audit trail of one device.
+func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
+	d, l, err := env.findDevice(ctx, lot, name)
+	if err != nil {
+		return err
+	}
+	sheet, err := env.Sheet(ctx, l.Name, SheetOptions{ReadOnly: true})
+	if err != nil {
+		return err
+	}
+	h := report.History{Lot: sheet.Lot, Part: sheet.Part, Device: report.Device{Device: d}, TestCurrent: sheet.TestCurrent, IdleCurrent: sheet.IdleCurrent}
+	for _, dev := range sheet.Devices {
+		if dev.ID == d.ID {
+			h.Device = dev
+		}
+	}
+	for _, v := range sheet.Spread.Devices {
+		if v.Name == d.Name {
+			h.Verdict = v
+		}
+	}
+	err = env.view(ctx, func(tx *store.Tx) error {
+		var err error
+		h.Changes, err = tx.Changes("device", d.ID)
+		return err
+	})
+	if err != nil {
+		return err
+	}
+	if env.JSON {
+		return report.HistoryJSON(env.Out, h)
+	}
+	return report.HistoryText(env.Out, h, env.style())
+}
+
+func (e *Env) findDevice(ctx context.Context, lot, name string) (d record.Device, l record.Lot, err error) {
+	err = e.view(ctx, func(tx *store.Tx) error {
+		d, l, err = deviceOf(tx, lot, name)
+		return err
+	})
+	return d, l, err
+}
+
+// DeviceChange changes one device and keeps the old value, who, when and why.
+func DeviceChange(ctx context.Context, env *Env, lot, name, reason string, change func(*record.Device)) error {
+	var before, after record.Device
+	err := env.update(ctx, false, func(tx *store.Tx) error {
+		d, l, err := deviceOf(tx, lot, name)
+		if err != nil {
+			return err
+		}
+		before = d
+		change(&d)
+		after = d
+		if d.Name != before.Name {
+			if _, err := tx.Device(l.ID, d.Name); err == nil {
+				return failed("", "device %q: already in lot %q", d.Name, l.Name)
+			}
+		}
+		return invalid(tx.PutDevice(&d, reason))
+	})
+	if err != nil {
+		return err
+	}
+	switch {
+	case before.Name != after.Name:
+		env.talk("device %s is now %s", report.Escape(before.Name), report.Escape(after.Name))
+	case before == after:
+		env.talk("device %s: nothing changed", report.Escape(name))
+	case before.Excluded != after.Excluded && after.Excluded:
+		env.talk("device %s is left out of every statistic; its readings are kept", report.Escape(name))
+	case before.Excluded != after.Excluded:
+		env.talk("device %s counts again", report.Escape(name))
+	default:
+		env.talk("device %s changed", report.Escape(name))
+	}
+	return nil
+}

@@ -1,0 +1,574 @@
+package job
+
+import (
+	"context"
+	"crypto/sha256"
+	"encoding/hex"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"io"
+	"maps"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+	"time"
+
+	"gatesill/acquire/bench"
+	"gatesill/acquire/table"
+	"gatesill/report"
+	"gatesill/store"
+	"gatesill/store/record"
+)
+
+// ImportRequest is what the import verb was asked to do.
+type ImportRequest struct {
+	Lot     string
+	Files   []string
+	Table   table.Options
+	Channel record.Channel // "": as the part has it
+
+	Operator, Fixture, Session string
+	Bench                      string // bench file, "" for none
+	DryRun                     bool
+	Again                      bool // import although seen before
+	Stdin                      io.Reader
+}
+
+// stdinName stands for stdin where a file has a name.
+const stdinName = "stdin"
+
+// Import reads files into a lot. Each file is one transaction; a store or a lot
+// that is not there is made with the first file that succeeds.
+func Import(ctx context.Context, env *Env, rq ImportRequest) error {
+	if err := record.CheckName("lot", rq.Lot); err != nil {
+		return invalid(err)
+	}
+	im := &importer{env: env, rq: rq}
+	if err := im.prepare(ctx); err != nil {
+		return err
+	}
+	defer im.close()
+	doc := report.ImportDoc{Lot: rq.Lot}
+	code := ExitDone
+	for _, name := range rq.Files {
+		f, err := im.one(ctx, name)
+		if errors.Is(err, context.Canceled) {
+			return err
+		}
+		if err != nil {
+			var fatal *Failure
+			if errors.As(err, &fatal) && fatal.Code == ExitUsage {
+				return err
+			}
+			code = ExitFailed
+			f.Fate, f.Reason = "refused", reason(err)
+			tellError(env, err)
+		}
+		doc.Files = append(doc.Files, f)
+		if !env.JSON {
+			im.print(f)
+		}
+	}
+	if env.JSON {
+		if err := report.ImportJSON(env.Out, doc); err != nil {
+			return err
+		}
+	}
+	if code != ExitDone {
+		return &Failure{Code: code}
+	}
+	return nil
+}
+
+// importer carries what the files of one import share.
+type importer struct {
+	env     *Env
+	rq      ImportRequest
+	db      *store.DB
+	made    bool // this import made the store
+	stored  bool // at least one file was stored
+	bench   *bench.Bench
+	session string // ID of the session
+	part    record.Part
+	seen    map[string]string // data hash -> device, over the lot and the files of this import
+	next    int               // position of the next sweep
+}
+
+// prepare reads the bench file and looks whether store and lot are there.
+func (im *importer) prepare(ctx context.Context) error {
+	if im.rq.Bench != "" {
+		b, err := bench.ReadFile(im.rq.Bench)
+		if err != nil {
+			return failed("gatesill help bench-file shows every key", "%w", err)
+		}
+		im.bench = b
+		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
+		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
+			im.env.warn("the calibration of the %s meter %s was due on %s", m.Role, report.Escape(m.Name), m.Due)
+		}
+	}
+	im.seen = map[string]string{}
+	im.part = record.NewPart(unnamedPart(im.rq.Lot))
+	db, err := im.env.open(ctx, false, im.rq.DryRun)
+	if errors.Is(err, store.ErrNoStore) {
+		err = nil
+	}
+	if err != nil {
+		return err
+	}
+	im.db = db
+	if db != nil {
+		err = db.View(ctx, im.look)
+	}
+	if im.rq.Channel != "" {
+		im.part.Channel = im.rq.Channel
+	}
+	im.rq.Table.PChannel = im.part.Channel == record.PChannel
+	if err != nil {
+		im.close()
+	}
+	return storeFailure(err)
+}
+
+// look reads what the store knows of lot and part.
+func (im *importer) look(tx *store.Tx) error {
+	lot, err := tx.Lot(im.rq.Lot)
+	if errors.Is(err, store.ErrNotFound) {
+		part, err := tx.Part(unnamedPart(im.rq.Lot))
+		if err == nil {
+			im.part = part
+		}
+		return nil
+	}
+	if err != nil {
+		return err
+	}
+	if im.part, err = tx.PartByID(lot.PartID); err != nil {
+		return err
+	}
+	devices, err := tx.Devices(lot.ID)
+	if err != nil {
+		return err
+	}
+	names := map[string]string{}
+	for _, d := range devices {
+		names[d.ID] = d.Name
+	}
+	sweeps, err := tx.Sweeps(lot.ID, false)
+	for _, s := range sweeps {
+		im.seen[s.DataHash] = names[s.DeviceID]
+		im.next = max(im.next, s.Position)
+	}
+	return err
+}
+
+// close leaves no store behind when nothing was stored.
+func (im *importer) close() {
+	if im.db == nil {
+		return
+	}
+	if im.made && !im.stored {
+		if err := im.db.Remove(); err != nil {
+			im.env.warn("%v", err)
+		}
+	} else if err := im.db.Close(); err != nil {
+		im.env.warn("%v", err)
+	}
+	im.db = nil
+}
+
+// one reads and stores one file.
+func (im *importer) one(ctx context.Context, name string) (report.ImportedFile, error) {
+	out := report.ImportedFile{File: name}
+	data, display, err := im.bytes(name)
+	if err != nil {
+		return out, err
+	}
+	if data != nil { // stdin: read once, as it cannot be read again
+		defer func() { im.rq.Stdin = nil }()
+	}
+	if prior, ok, err := im.seenBefore(ctx, name, data); err != nil {
+		return out, err
+	} else if ok && !im.rq.Again {
+		out.Fate, out.Layout = "seen before", prior.Layout
+		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; --again imports them once more", report.Escape(prior.Name), prior.ImportedAt[:10])
+		return out, nil
+	}
+	opt, progress := im.options(ctx, display)
+	var f *table.File
+	if data != nil {
+		f, err = table.Read(stdinName, strings.NewReader(string(data)), opt)
+	} else {
+		f, err = table.ReadFile(name, opt)
+	}
+	progress.Done()
+	if err != nil {
+		return out, err
+	}
+	sweeps, left, err := im.ofLot(f)
+	if err != nil {
+		return out, err
+	}
+	out.Layout, out.Dialect, out.RowsRefused = f.Layout, f.Dialect, f.Refused
+	out.Read = f
+	out.OtherLots = left
+	out.Sweeps = len(sweeps)
+	devices := map[string]bool{}
+	for i := range sweeps {
+		devices[sweeps[i].Device] = true
+		out.Points += sweeps[i].Len()
+	}
+	out.Devices = len(devices)
+	im.tell(f, sweeps)
+	if im.rq.DryRun {
+		out.Fate = "not stored"
+		return out, nil
+	}
+	if err := im.store(ctx, f, sweeps); err != nil {
+		return out, err
+	}
+	out.Fate = "stored"
+	return out, nil
+}
+
+// bytes reads stdin; for a file it returns nil.
+func (im *importer) bytes(name string) ([]byte, string, error) {
+	if name != "-" {
+		return nil, filepath.Base(name), nil
+	}
+	if im.rq.Stdin == nil {
+		return nil, stdinName, Usage("", "stdin can be read only once")
+	}
+	const limit = 1 << 30
+	b, err := io.ReadAll(io.LimitReader(im.rq.Stdin, limit+1))
+	if err != nil {
+		return nil, stdinName, fmt.Errorf("stdin: %w", err)
+	}
+	if len(b) > limit {
+		return nil, stdinName, failed("split it", "stdin: more than 1 GiB")
+	}
+	if b == nil {
+		b = []byte{}
+	}
+	return b, stdinName, nil
+}
+
+// seenBefore looks for the same bytes among the lot's sources.
+func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (prior record.Source, ok bool, err error) {
+	if im.db == nil {
+		return prior, false, nil
+	}
+	h := sha256.New()
+	if data != nil {
+		h.Write(data)
+	} else {
+		f, err := os.Open(name)
+		if err != nil {
+			return prior, false, nil // the reader says it better
+		}
+		defer f.Close()
+		if st, err := f.Stat(); err != nil || !st.Mode().IsRegular() {
+			return prior, false, nil
+		}
+		if _, err := io.Copy(h, f); err != nil {
+			return prior, false, err
+		}
+	}
+	err = im.db.View(ctx, func(tx *store.Tx) error {
+		lot, err := tx.Lot(im.rq.Lot)
+		if err != nil {
+			return err
+		}
+		prior, err = tx.SourceByHash(lot.ID, hex.EncodeToString(h.Sum(nil)))
+		return err
+	})
+	if errors.Is(err, store.ErrNotFound) {
+		return prior, false, nil
+	}
+	return prior, err == nil, storeFailure(err)
+}
+
+// options completes the reader's options for one file.
+func (im *importer) options(ctx context.Context, name string) (table.Options, *progress) {
+	opt := im.rq.Table
+	opt.Ask = im.env.Ask
+	opt.Remembered = func(signature string) (m map[string]string, ok bool) {
+		if im.db == nil {
+			return nil, false
+		}
+		err := im.db.View(ctx, func(tx *store.Tx) (err error) {
+			m, ok, err = tx.Mapping(signature)
+			return err
+		})
+		return m, ok && err == nil
+	}
+	p := newProgress(im.env, report.Escape(name))
+	opt.Progress = p.At
+	return opt, p
+}
+
+// ofLot picks the sweeps that belong to the lot. A file with a lot column gives
+// the lot its own rows; the others are named, so that they can be imported in
+// their turn.
+func (im *importer) ofLot(f *table.File) ([]table.Sweep, map[string]int, error) {
+	byLot := map[string]int{}
+	for i := range f.Sweeps {
+		byLot[f.Sweeps[i].Lot]++
+	}
+	if len(byLot) == 1 && im.rq.Table.LotColumn == "" || byLot[""] == len(f.Sweeps) {
+		for l := range byLot {
+			if l != "" && l != im.rq.Lot {
+				im.env.warn("%s: its lot column says %s, stored in lot %s as asked", report.Escape(f.Name), report.Escape(l), report.Escape(im.rq.Lot))
+			}
+		}
+		return f.Sweeps, nil, nil
+	}
+	if byLot[im.rq.Lot] == 0 {
+		var names []string
+		for _, l := range slices.Sorted(maps.Keys(byLot)) {
+			names = append(names, Quote(l))
+		}
+		return nil, nil, &table.Error{
+			File: f.Name, Err: fmt.Errorf("%w: its lot column has no lot %q, it has %s", table.ErrRefused, im.rq.Lot, strings.Join(names, ", ")),
+			Hint: "import one of these lots by its name",
+		}
+	}
+	var out []table.Sweep
+	for _, s := range f.Sweeps {
+		if s.Lot == im.rq.Lot {
+			out = append(out, s)
+		}
+	}
+	delete(byLot, im.rq.Lot)
+	return out, byLot, nil
+}
+
+// tell warns of what the reader noticed and of rows known under another name.
+func (im *importer) tell(f *table.File, sweeps []table.Sweep) {
+	for _, r := range f.Remarks {
+		im.env.warn("%s: %s [%s]", report.Escape(f.Name), r.Text, r.Code)
+	}
+	noCircuit := false
+	for i := range sweeps {
+		s := &sweeps[i]
+		noCircuit = noCircuit || s.Condition.Circuit == record.NoCircuit && s.Direction != record.Spot
+		if other, ok := im.seen[s.DataHash]; ok && other != s.Device {
+			im.env.warn("%s: device %s has the same rows as device %s [same-rows]", report.Escape(f.Name), report.Escape(s.Device), report.Escape(other))
+		}
+	}
+	if noCircuit {
+		im.env.warn("%s: circuit not given, so only constant-current values will be had; --circuit load, diode or fixed tells it [no-circuit]", report.Escape(f.Name))
+	}
+}
+
+// store puts one file into the store in one transaction.
+func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Sweep) error {
+	if im.db == nil {
+		db, err := im.env.open(ctx, true, false)
+		if err != nil {
+			return err
+		}
+		im.db, im.made = db, true
+	}
+	session, next := im.session, im.next
+	err := im.db.Update(ctx, func(tx *store.Tx) error {
+		lot, err := im.lot(tx)
+		if err != nil {
+			return err
+		}
+		src := record.Source{LotID: lot.ID, Name: f.Name, Hash: f.Hash, Size: f.Size, Layout: f.Layout, Dialect: mustJSON(f.Dialect), ImportedAt: record.Now()}
+		if err := tx.AddSource(&src); err != nil {
+			return err
+		}
+		devices, err := im.devices(tx, lot, sweeps)
+		if err != nil {
+			return err
+		}
+		if session, err = im.sessionFor(tx, lot, sweeps); err != nil {
+			return err
+		}
+		rows := make([]record.Sweep, len(sweeps))
+		for i := range sweeps {
+			next++
+			r := sweeps[i].Sweep
+			r.LotID, r.DeviceID, r.SessionID, r.SourceID, r.Position = lot.ID, devices[sweeps[i].Device].ID, session, src.ID, next
+			if im.bench != nil {
+				r.Instruments = im.bench.Meters
+			}
+			rows[i] = r
+		}
+		if err := tx.AddSweeps(rows); err != nil {
+			return err
+		}
+		if len(im.rq.Table.Map) > 0 && f.Dialect.Signature != "" {
+			return tx.PutMapping(f.Dialect.Signature, im.rq.Table.Map)
+		}
+		return nil
+	})
+	if err != nil {
+		return storeFailure(err)
+	}
+	im.session, im.next, im.stored = session, next, true
+	for i := range sweeps {
+		im.seen[sweeps[i].DataHash] = sweeps[i].Device
+	}
+	return nil
+}
+
+// lot gives the lot, made with its part when it is not there yet.
+func (im *importer) lot(tx *store.Tx) (record.Lot, error) {
+	lot, err := tx.Lot(im.rq.Lot)
+	absent := errors.Is(err, store.ErrNotFound)
+	if err != nil && !absent {
+		return lot, err
+	}
+	if absent || im.rq.Channel != "" {
+		if err := tx.PutPart(&im.part, "import"); err != nil {
+			return lot, invalid(err)
+		}
+	}
+	if absent {
+		lot = record.Lot{Name: im.rq.Lot, PartID: im.part.ID, CreatedAt: record.Now()}
+		err = tx.PutLot(&lot, "import")
+		return lot, invalid(err)
+	}
+	return lot, nil
+}
+
+// devices gives the lot's devices by name, with the new ones of the file added.
+func (im *importer) devices(tx *store.Tx, lot record.Lot, sweeps []table.Sweep) (map[string]record.Device, error) {
+	have, err := tx.Devices(lot.ID)
+	if err != nil {
+		return nil, err
+	}
+	byName := make(map[string]record.Device, len(have)+len(sweeps))
+	for _, d := range have {
+		byName[d.Name] = d
+	}
+	var fresh []record.Device
+	for i := range sweeps {
+		s := &sweeps[i]
+		if _, ok := byName[s.Device]; ok {
+			continue
+		}
+		d := record.Device{
+			LotID: lot.ID, Name: s.Device, Package: s.Package, Side: s.Side, DateCode: s.DateCode, Marking: s.Marking, Tube: s.Tube,
+			Role: record.Sample, Note: s.Note, CreatedAt: record.Now(),
+		}
+		fresh = append(fresh, d)
+		byName[s.Device] = d
+	}
+	if err := tx.AddDevices(lot.ID, fresh); err != nil {
+		return nil, invalid(err)
+	}
+	for _, d := range fresh {
+		byName[d.Name] = d
+	}
+	return byName, nil
+}
+
+// sessionFor gives the session of this import: the one of that name, or a new
+// one when operator, fixture, bench or name were given, else none.
+func (im *importer) sessionFor(tx *store.Tx, lot record.Lot, sweeps []table.Sweep) (string, error) {
+	if im.session != "" {
+		return im.session, nil
+	}
+	s := record.Session{Name: im.rq.Session, Operator: im.rq.Operator, Fixture: im.rq.Fixture, StartedAt: record.Now()}
+	for i := range sweeps {
+		t := &sweeps[i]
+		if s.Operator == "" {
+			s.Operator = t.Operator
+		}
+		if s.Fixture == "" {
+			s.Fixture = t.Fixture
+		}
+		if t.Condition.TempOf == "ambient" {
+			s.Ambient = s.Ambient.Else(t.Condition.Temp)
+		}
+	}
+	if im.bench != nil {
+		s.Bench = im.bench.Name
+		if _, err := tx.AddBench(im.bench.Name, im.bench.Text); err != nil {
+			return "", err
+		}
+	}
+	if s.Name == "" && s.Operator == "" && s.Fixture == "" && s.Bench == "" {
+		return "", nil
+	}
+	if s.Name != "" {
+		have, err := tx.Sessions(lot.ID)
+		if err != nil {
+			return "", err
+		}
+		for _, h := range have {
+			if h.Name == s.Name && h.Bench == s.Bench && h.Operator == s.Operator && h.Fixture == s.Fixture {
+				return h.ID, nil
+			}
+		}
+	}
+	err := tx.AddSession(&s)
+	return s.ID, err
+}
+
+// print says what became of one file, for people.
+func (im *importer) print(f report.ImportedFile) {
+	if im.env.Quiet && f.Fate != "refused" {
+		return
+	}
+	if err := report.ImportText(im.env.Out, im.rq.Lot, f, im.env.style()); err != nil {
+		im.env.warn("%v", err)
+	}
+}
+
+// merge fills what a leaves unknown from b.
+func merge(a, b record.Condition) record.Condition {
+	text := func(x, y string) string {
+		if x != "" {
+			return x
+		}
+		return y
+	}
+	return record.Condition{
+		Circuit: record.Circuit(text(string(a.Circuit), string(b.Circuit))),
+		RL:      a.RL.Else(b.RL), RLTol: a.RLTol.Else(b.RLTol), RLRating: a.RLRating.Else(b.RLRating), VDD: a.VDD.Else(b.VDD), VDS: a.VDS.Else(b.VDS),
+		Ammeter: text(a.Ammeter, b.Ammeter), Burden: a.Burden.Else(b.Burden), GateReturn: text(a.GateReturn, b.GateReturn),
+		Pulsed: text(a.Pulsed, b.Pulsed), PulseWidth: a.PulseWidth.Else(b.PulseWidth), PulseDuty: a.PulseDuty.Else(b.PulseDuty), PulseDelay: a.PulseDelay.Else(b.PulseDelay),
+		Dwell: a.Dwell.Else(b.Dwell), Temp: a.Temp.Else(b.Temp), TempOf: text(a.TempOf, b.TempOf), SpotCurrent: a.SpotCurrent.Else(b.SpotCurrent),
+	}
+}
+
+func mustJSON(v any) string {
+	b, err := json.Marshal(v)
+	if err != nil { // only texts and whole numbers in it
+		panic(err)
+	}
+	return string(b)
+}
+
+// reason is an error in one line, without its hint.
+func reason(err error) string { return strings.ReplaceAll(err.Error(), "\n", "; ") }
+
+// tellError writes an error and its hint to stderr.
+func tellError(env *Env, err error) { WriteError(env.Err, err) }
+
+// WriteError writes an error with its place, and the hint that goes with it.
+func WriteError(w io.Writer, err error) {
+	var f *Failure
+	var t *table.Error
+	hint := ""
+	switch {
+	case errors.As(err, &f):
+		if f.Err == nil {
+			return
+		}
+		hint = f.Hint
+	case errors.As(err, &t):
+		hint = t.Hint
+	}
+	fmt.Fprintf(w, "gatesill: error: %s\n", report.EscapeText(err.Error()))
+	if hint != "" {
+		fmt.Fprintf(w, "gatesill: hint: %s\n", report.EscapeText(hint))
+	}
+}

@@ -1,0 +1,207 @@
+// Package job holds the jobs of the command line end to end, one file each. It
+// is the only place that knows acquire, store, fit and report together.
+//
+// It has no SQL and no numerics of its own, and it parses no flags.
+package job
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"time"
+
+	"gatesill/acquire/table"
+	"gatesill/store"
+	"gatesill/store/record"
+)
+
+// Env is what every job works in.
+type Env struct {
+	Store string    // path of the store; "": the default one
+	Out   io.Writer // results
+	Err   io.Writer // talk
+	Width int       // columns of the terminal on Out, 0: none
+
+	JSON, Color, ErrColor, Quiet, Verbose, Yes bool
+
+	Ask      func(table.Question) (string, error) // nil: stdin is no terminal
+	Progress bool                                 // Err is a terminal
+	Who      string                               // for the audit trail
+	Version  string                               // of the program
+}
+
+// Exit codes, as promised to scripts.
+const (
+	ExitDone        = 0
+	ExitFailed      = 1   // the job failed, or some of several files were refused
+	ExitUsage       = 2   // used wrongly
+	ExitNo          = 3   // the answer is 'no' and --fail asked for that
+	ExitInstrument  = 4   // instrument or port trouble
+	ExitInterrupted = 130 // Ctrl-C
+)
+
+// Failure is an error with the exit code it ends in and the next command to
+// type.
+type Failure struct {
+	Code int
+	Err  error // nil: everything has been said already
+	Hint string
+}
+
+// Error gives the text of the error, without the hint.
+func (f *Failure) Error() string {
+	if f.Err == nil {
+		return fmt.Sprintf("exit code %d", f.Code)
+	}
+	return f.Err.Error()
+}
+
+// Unwrap gives the error behind.
+func (f *Failure) Unwrap() error { return f.Err }
+
+// Usage is a failure for a command that was used wrongly.
+func Usage(hint, format string, args ...any) error {
+	return &Failure{Code: ExitUsage, Err: fmt.Errorf(format, args...), Hint: hint}
+}
+
+// failed is a failure of the job itself.
+func failed(hint, format string, args ...any) error {
+	return &Failure{Code: ExitFailed, Err: fmt.Errorf(format, args...), Hint: hint}
+}
+
+// warn tells of something that does not stop the job.
+func (e *Env) warn(format string, args ...any) {
+	fmt.Fprintf(e.Err, "gatesill: warning: "+format+"\n", args...)
+}
+
+// talk says what is being done, unless told to be quiet.
+func (e *Env) talk(format string, args ...any) {
+	if !e.Quiet {
+		fmt.Fprintf(e.Err, format+"\n", args...)
+	}
+}
+
+// path is the store's path, the default one when none was given.
+func (e *Env) path() (string, error) {
+	if e.Store != "" {
+		return e.Store, nil
+	}
+	return store.DefaultPath()
+}
+
+// open opens the store. Jobs that only look take readOnly, so that a store on a
+// locked card can still be read.
+func (e *Env) open(ctx context.Context, create, readOnly bool) (*store.DB, error) {
+	path, err := e.path()
+	if err != nil {
+		return nil, failed("name one with --store PATH", "%w", err)
+	}
+	db, err := store.Open(ctx, path, store.Options{Create: create, ReadOnly: readOnly, Wait: 10 * time.Second, Who: e.Who})
+	if err != nil {
+		return nil, storeFailure(err)
+	}
+	return db, nil
+}
+
+// hints of the store's errors that it does not bring itself.
+var storeHints = []struct {
+	err  error
+	hint string
+}{
+	{store.ErrNoStore, "gatesill import LOT FILE makes one; --store PATH names another"},
+	{store.ErrNotOurs, "--store PATH names another file"},
+	{store.ErrNewer, "use the newer program that wrote it"},
+	{store.ErrCorrupt, "go back to your last copy made by gatesill backup FILE, and keep the damaged file"},
+	{store.ErrReadOnly, "make file and folder writable, or work on a copy"},
+	{store.ErrFull, "free some space and try again; nothing was stored halfway"},
+	{store.ErrBusy, "wait until the other program is done, then try again"},
+}
+
+// storeFailure adds exit code and hint to an error of the store.
+func storeFailure(err error) error {
+	var f *Failure
+	if err == nil || errors.As(err, &f) || errors.Is(err, context.Canceled) {
+		return err
+	}
+	var withHint interface{ Hint() string }
+	if errors.As(err, &withHint) && withHint.Hint() != "" {
+		return &Failure{Code: ExitFailed, Err: err, Hint: withHint.Hint()}
+	}
+	for _, h := range storeHints {
+		if errors.Is(err, h.err) {
+			return &Failure{Code: ExitFailed, Err: err, Hint: h.hint}
+		}
+	}
+	return &Failure{Code: ExitFailed, Err: err}
+}
+
+// view runs f in a read transaction of the store.
+func (e *Env) view(ctx context.Context, f func(*store.Tx) error) error {
+	db, err := e.open(ctx, false, true)
+	if err != nil {
+		return err
+	}
+	err = db.View(ctx, f)
+	return storeFailure(errors.Join(err, db.Close()))
+}
+
+// update runs f in a write transaction of an existing store.
+func (e *Env) update(ctx context.Context, create bool, f func(*store.Tx) error) error {
+	db, err := e.open(ctx, create, false)
+	if err != nil {
+		return err
+	}
+	err = db.Update(ctx, f)
+	return storeFailure(errors.Join(err, db.Close()))
+}
+
+// lotOf finds a lot by name, with a hint that lists the lots when there is none.
+func lotOf(tx *store.Tx, name string) (record.Lot, record.Part, error) {
+	lot, err := tx.Lot(name)
+	if errors.Is(err, store.ErrNotFound) {
+		return lot, record.Part{}, failed("gatesill lot list shows the lots", "lot %q: not in this store", name)
+	}
+	if err != nil {
+		return lot, record.Part{}, err
+	}
+	part, err := tx.PartByID(lot.PartID)
+	return lot, part, err
+}
+
+// WriteFile writes a file through a neighbour that is renamed at the end, so
+// that a failed job leaves the old file as it was. "-" is stdout.
+func (e *Env) WriteFile(path string, write func(io.Writer) error) (err error) {
+	if path == "-" {
+		return write(e.Out)
+	}
+	if st, serr := os.Stat(path); serr == nil && st.IsDir() {
+		return failed("name a file in it", "%s is a folder", path)
+	}
+	f, err := os.CreateTemp(filepath.Dir(path), ".gatesill-*")
+	if err != nil {
+		return failed("", "%s: %w", path, err)
+	}
+	defer func() {
+		if err != nil {
+			os.Remove(f.Name())
+		}
+	}()
+	if err = write(f); err != nil {
+		f.Close()
+		return err
+	}
+	if err = f.Chmod(0o644); err != nil && !errors.Is(err, errors.ErrUnsupported) {
+		f.Close()
+		return failed("", "%s: %w", path, err)
+	}
+	if err = f.Close(); err != nil {
+		return failed("", "%s: %w", path, err)
+	}
+	if err = os.Rename(f.Name(), path); err != nil {
+		return failed("", "%s: %w", path, err)
+	}
+	return nil
+}

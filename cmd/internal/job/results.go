@@ -1,0 +1,237 @@
+package job
+
+import (
+	"context"
+	"io"
+	"path/filepath"
+	"slices"
+	"strings"
+
+	"gatesill/fit"
+	"gatesill/fit/lot"
+	"gatesill/report"
+	"gatesill/report/page"
+	"gatesill/store"
+	"gatesill/store/record"
+)
+
+// Fit fits the lot's sweeps and shows the values.
+func Fit(ctx context.Context, env *Env, name string, o SheetOptions) error {
+	s, err := env.Sheet(ctx, name, o)
+	if err != nil {
+		return err
+	}
+	if env.JSON {
+		return report.FitJSON(env.Out, s)
+	}
+	return report.FitTable(env.Out, s, env.style())
+}
+
+// Spread shows what the lot's devices have in common and which stand apart.
+// With fail it ends in [ExitNo] when a device is flagged.
+func Spread(ctx context.Context, env *Env, name string, o SheetOptions, fail bool) error {
+	s, err := env.Sheet(ctx, name, o)
+	if err != nil {
+		return err
+	}
+	if env.JSON {
+		err = report.SpreadJSON(env.Out, s)
+	} else {
+		err = report.SpreadTable(env.Out, s, env.style())
+	}
+	if err != nil || !fail {
+		return err
+	}
+	for _, v := range s.Spread.Devices {
+		if v.Flagged {
+			return &Failure{Code: ExitNo}
+		}
+	}
+	return nil
+}
+
+// SortRequest is how a lot is put in bins.
+type SortRequest struct {
+	By    string // "vgsth", "vgs-idle", "gm-idle"; "": as the lot is sorted
+	Width string // with unit; "" none
+	Edges []string
+	Bins  int
+	Fail  bool
+}
+
+// sortKeys are the quantities that can be binned, by their names as flags take
+// them, with their units.
+var sortKeys = map[string]struct {
+	key  fit.Key
+	unit string
+}{
+	"vgsth": {fit.KeyVgsth, "V"}, "vgs-idle": {fit.KeyVgsIdle, "V"}, "gm-idle": {fit.KeyGmIdle, "S"},
+}
+
+// Sort puts the lot in bins. With Fail it ends in [ExitNo] when a device is in
+// no bin.
+func Sort(ctx context.Context, env *Env, name string, o SheetOptions, rq SortRequest) error {
+	s, err := env.Sheet(ctx, name, o)
+	if err != nil {
+		return err
+	}
+	opt, err := sortOptions(&s, rq)
+	if err != nil {
+		return err
+	}
+	if err := sortSheet(&s, opt); err != nil {
+		return Usage("gatesill help sort", "%w", err)
+	}
+	if env.JSON {
+		err = report.SortJSON(env.Out, s)
+	} else {
+		err = report.SortTable(env.Out, s, env.style())
+	}
+	if err == nil && rq.Fail && len(s.Sorting.Unsorted) > 0 {
+		return &Failure{Code: ExitNo}
+	}
+	return err
+}
+
+func sortSheet(s *report.Sheet, opt lot.SortOptions) error {
+	sorting, err := lot.SortInto(lotDevices(s), opt)
+	if err == nil {
+		s.Sorting = &sorting
+	}
+	return err
+}
+
+func sortOptions(s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
+	opt := lot.SortOptions{By: s.SortedBy, Bins: rq.Bins}
+	unit := "V"
+	if rq.By != "" {
+		k, ok := sortKeys[rq.By]
+		if !ok {
+			return opt, Usage("--by vgsth, --by vgs-idle or --by gm-idle", "--by %s: no such quantity", rq.By)
+		}
+		opt.By, unit = k.key, k.unit
+	}
+	given := 0
+	for _, yes := range []bool{rq.Width != "", len(rq.Edges) > 0, rq.Bins != 0} {
+		if yes {
+			given++
+		}
+	}
+	if given > 1 {
+		return opt, Usage("leave two of them out", "--width, --edges and --bins exclude each other")
+	}
+	if rq.Width != "" {
+		w, err := record.ParseNumber(rq.Width, unit)
+		if err != nil {
+			return opt, Usage("--width 50mV", "--width: %w", err)
+		}
+		if w <= 0 {
+			return opt, Usage("--width 50mV", "--width: %s, must be above 0", rq.Width)
+		}
+		opt.Width = w
+	}
+	for _, e := range rq.Edges {
+		x, err := record.ParseNumber(e, unit)
+		if err != nil {
+			return opt, Usage("--edges 2.7,2.8,2.9", "--edges: %w", err)
+		}
+		opt.Edges = append(opt.Edges, x)
+	}
+	if given == 0 {
+		opt.Width = lot.NiceWidth(lotDevices(s), opt.By)
+	}
+	return opt, nil
+}
+
+// Report writes the self-contained page of a lot.
+func Report(ctx context.Context, env *Env, name, path string, o SheetOptions) error {
+	s, err := env.Sheet(ctx, name, o)
+	if err != nil {
+		return err
+	}
+	if err := sortSheet(&s, lot.SortOptions{By: s.SortedBy, Width: lot.NiceWidth(lotDevices(&s), s.SortedBy)}); err != nil {
+		return err
+	}
+	if err := env.WriteFile(path, func(w io.Writer) error { return page.Write(w, s) }); err != nil {
+		return err
+	}
+	if path != "-" {
+		env.talk("report of lot %s: %s", report.Escape(name), report.Escape(path))
+	}
+	return nil
+}
+
+// Export writes the lot for programs: estimates by device or points as CSV, or
+// everything as JSON; the file's ending decides.
+func Export(ctx context.Context, env *Env, name, path string, points bool, o SheetOptions) error {
+	var write func(io.Writer, report.Sheet) error
+	switch ext := strings.ToLower(filepath.Ext(path)); {
+	case ext == ".csv" && points:
+		write = report.WritePointsCSV
+	case ext == ".csv":
+		write = report.WriteDevicesCSV
+	case ext == ".json", path == "-" && env.JSON:
+		write = report.WriteJSON
+	case path == "-" && points:
+		write = report.WritePointsCSV
+	case path == "-":
+		write = report.WriteDevicesCSV
+	default:
+		return Usage("-o FILE.csv or -o FILE.json", "%s: the ending says the format, and %q is none of .csv, .json", path, ext)
+	}
+	s, err := env.Sheet(ctx, name, o)
+	if err != nil {
+		return err
+	}
+	if err := env.WriteFile(path, func(w io.Writer) error { return write(w, s) }); err != nil {
+		return err
+	}
+	if path != "-" {
+		env.talk("%s of lot %s: %s", count(len(s.Devices), "device"), report.Escape(name), report.Escape(path))
+	}
+	return nil
+}
+
+// Backup copies the store, also while something writes to it.
+func Backup(ctx context.Context, env *Env, path string) error {
+	db, err := env.open(ctx, false, false)
+	if err != nil {
+		return err
+	}
+	defer db.Close()
+	p := newProgress(env, "backup")
+	err = db.Backup(ctx, path, func(done, total int) { p.At(int64(done), int64(total)) })
+	p.Done()
+	if err != nil {
+		return storeFailure(err)
+	}
+	env.talk("copy of %s: %s", report.Escape(db.Path()), report.Escape(path))
+	return nil
+}
+
+// Names lists lots, or the devices of one, for completion; nothing when there
+// is no store.
+func Names(ctx context.Context, env *Env, lotName string) []string {
+	var out []string
+	quiet := *env
+	quiet.Err = io.Discard
+	_ = quiet.view(ctx, func(tx *store.Tx) error { // completion has nobody to tell an error
+		if lotName == "" {
+			lots, err := tx.Lots()
+			for _, l := range lots {
+				out = append(out, l.Name)
+			}
+			return err
+		}
+		l, err := tx.Lot(lotName)
+		if err != nil {
+			return err
+		}
+		ds, err := tx.Devices(l.ID)
+		for _, d := range ds {
+			out = append(out, d.Name)
+		}
+		return err
+	})
+	return slices.DeleteFunc(out, func(n string) bool { return strings.ContainsAny(n, "\n\t") })
+}
