@@ -30,6 +30,64 @@ type Sheet struct {
 	Version string       // of the program
 	Hash    string       // SHA-256 over the canonical data, hex
 	Latest  string       // latest time stamp in the data: the page has no present time
+
+	Codes []fit.CodeInfo // explains the warning codes; nil: they are shown without advice
+}
+
+// Verdicts gives the verdict of the spread on each device, by name.
+func (s *Sheet) Verdicts() map[string]lot.Verdict {
+	m := make(map[string]lot.Verdict, len(s.Spread.Devices))
+	for _, v := range s.Spread.Devices {
+		m[v.Name] = v
+	}
+	return m
+}
+
+// Counts is how many devices of a lot are in which state.
+type Counts struct {
+	Devices  int // all that are known
+	Measured int // with a value, excluded and control ones aside
+	Flagged  int
+	Control  int
+	State    map[fit.State]int // all devices; "" for those without a sweep
+}
+
+// Counts counts the devices of the sheet.
+func (s *Sheet) Counts() Counts {
+	c := Counts{Devices: len(s.Devices), State: map[fit.State]int{}}
+	for _, d := range s.Devices {
+		c.State[d.State()]++
+		switch {
+		case d.Role == record.Control:
+			c.Control++
+		case d.State() == fit.Measured:
+			c.Measured++
+		}
+	}
+	for _, v := range s.Spread.Devices {
+		if v.Flagged {
+			c.Flagged++
+		}
+	}
+	return c
+}
+
+// BinOf gives the bin of each sorted device, and the bin across the edge that
+// it may belong to as well.
+func (s *Sheet) BinOf() (bin, maybe map[string]string) {
+	bin, maybe = map[string]string{}, map[string]string{}
+	if s.Sorting == nil {
+		return bin, maybe
+	}
+	for _, b := range s.Sorting.Bins {
+		for _, p := range b.Devices {
+			bin[p.Name] = b.Name
+			if p.Maybe != "" {
+				maybe[p.Name] = p.Maybe
+			}
+		}
+	}
+	return bin, maybe
 }
 
 // Device is one device with its sweeps and what was made of them.

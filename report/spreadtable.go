@@ -1,0 +1,166 @@
+package report
+
+import (
+	"fmt"
+	"io"
+	"math"
+	"strconv"
+	"strings"
+
+	"gatesill/fit"
+	"gatesill/fit/lot"
+)
+
+// SpreadTable writes the spread of a lot for people: one line a quantity with
+// its n, the limits behind the flags, then every flagged device with its
+// reasons in sentences.
+func SpreadTable(w io.Writer, s Sheet, style Style) error {
+	p := &printer{w: w}
+	by := s.Spread.SortedBy
+	if by == "" {
+		by = s.SortedBy
+	}
+	p.line("%s", s.sortedLine(by))
+	keys := spreadKeys(s.Spread)
+	if len(keys) == 0 {
+		p.line("No device of the lot has a value: there is no spread to show.")
+		notMeasured(p, s, style)
+		lotWarnings(p, s, s.Spread.Warnings, style)
+		return p.err
+	}
+	p.line("")
+	dropped := p.grid(summaryGrid(s, keys, style))
+	if len(s.Spread.Limits) > 0 {
+		p.line("")
+		p.grid(limitGrid(s, style))
+	}
+	p.line("")
+	if len(dropped) > 0 {
+		p.line("No room for: %s. A wider terminal or --json shows them.", strings.Join(dropped, ", "))
+	}
+	if s.Spread.Estimator != "" {
+		wrapped(p, "", "", "Robust sd: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
+	}
+	if sp := s.Spread.Split; sp != nil {
+		wrapped(p, "", "  ", fmt.Sprintf("Two populations: %s", Clean(sp.Text)), style.Width)
+		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
+		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
+	}
+	lotWarnings(p, s, s.Spread.Warnings, style)
+	flags(p, s, style)
+	return p.err
+}
+
+// spreadKeys are the quantities with a summary, in the order of fit.Keys.
+func spreadKeys(sp lot.Spread) []fit.Key {
+	var keys []fit.Key
+	for _, k := range fit.Keys {
+		if m, ok := sp.Summary[k]; ok && (m.N > 0 || m.Above > 0) {
+			keys = append(keys, k)
+		}
+	}
+	return keys
+}
+
+// StandardError is the standard uncertainty of the mean of a summary, sd/√n;
+// NaN where it cannot be had. It decides the digits in which a spread is shown.
+func StandardError(m lot.Summary) float64 {
+	if m.N < 2 || !(m.SD > 0) {
+		return math.NaN()
+	}
+	return m.SD / math.Sqrt(float64(m.N))
+}
+
+// SummaryScale is the prefix for all numbers of one summary.
+func SummaryScale(k fit.Key, m lot.Summary) Scale {
+	return ScaleOf(KeyOf(k).Unit, m.Median, m.Mean, m.Max)
+}
+
+func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
+	heads := []string{"n", "above", "median", "robust sd", "mean", "± (mean)", "sd", "least", "greatest"}
+	cells := make([][]string, len(heads))
+	var names, units []string
+	for _, k := range keys {
+		m := s.Spread.Summary[k]
+		sc := SummaryScale(k, m)
+		se := StandardError(m)
+		num := func(x float64) string { return sc.FormatNumber(x, se, 0) }
+		seText := NotAvailable
+		if d, ok := DecimalsFor(sc.Of(se)); ok {
+			seText = fixed(sc.Of(se), d)
+		}
+		names = append(names, s.KeyPhrase(k))
+		units = append(units, sc.Unit(KeyOf(k).Unit))
+		for i, text := range []string{
+			strconv.Itoa(m.N), strconv.Itoa(m.Above), num(m.Median), num(m.RobustSD), num(m.Mean), seText, num(m.SD), num(m.Min), num(m.Max),
+		} {
+			cells[i] = append(cells[i], text)
+		}
+	}
+	// Each line is one quantity with its own unit: the prefix holds for the line.
+	g := grid{style: style, cols: []column{{head: "quantity", cells: names, wrap: 20}, {head: "unit", cells: units}}}
+	ranks := []int{0, 0, 0, 0, 1, 1, 2, 3, 3}
+	for i, h := range heads {
+		g.cols = append(g.cols, column{head: h, cells: cells[i], right: true, rank: ranks[i]})
+	}
+	return g
+}
+
+func limitGrid(s Sheet, style Style) grid {
+	var names, units, lows, highs, ks, bases []string
+	for _, k := range fit.Keys {
+		l, ok := s.Spread.Limits[k]
+		if !ok {
+			continue
+		}
+		m := s.Spread.Summary[k]
+		sc := SummaryScale(k, m)
+		se := StandardError(m)
+		names = append(names, KeyOf(k).Symbol)
+		units = append(units, sc.Unit(KeyOf(k).Unit))
+		lows = append(lows, sc.FormatNumber(l.Low, se, 0))
+		highs = append(highs, sc.FormatNumber(l.High, se, 0))
+		ks = append(ks, kWords(l.K))
+		bases = append(bases, Clean(l.Basis))
+	}
+	return grid{style: style, cols: []column{
+		{head: "flagged outside", cells: names}, {head: "unit", cells: units},
+		{head: "low", cells: lows, right: true}, {head: "high", cells: highs, right: true},
+		{head: "robust sd", cells: ks, right: true}, {head: "basis", cells: bases},
+	}}
+}
+
+func kWords(k float64) string {
+	if !isNumber(k) {
+		return NotAvailable
+	}
+	return "± " + strconv.FormatFloat(k, 'g', 3, 64)
+}
+
+// flags lists the flagged devices with their reasons.
+func flags(p *printer, s Sheet, style Style) {
+	total, flagged := len(s.Spread.Devices), 0
+	for _, v := range s.Spread.Devices {
+		if v.Flagged {
+			flagged++
+		}
+	}
+	p.line("")
+	if flagged == 0 {
+		p.line("No device is flagged (of %d).", total)
+		return
+	}
+	p.line("%s", style.paint(fmt.Sprintf("Flagged: %d of %d", flagged, total), bold))
+	for _, v := range s.Spread.Devices {
+		if !v.Flagged {
+			continue
+		}
+		name := Clean(v.Name)
+		for _, r := range v.Reasons {
+			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(r.Text), Clean(r.Code)), style.Width)
+		}
+		if len(v.Reasons) == 0 {
+			p.line("  %s", style.paint(name, red))
+		}
+	}
+}
