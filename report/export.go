@@ -369,8 +369,12 @@ func DeviceJSON(w io.Writer, f DeviceFile) error {
 		sweeps = append(sweeps, fullSweepDocOf(&d.Sweeps[i]))
 	}
 	for _, c := range f.Changes {
-		changes = append(changes, changeDoc{c.At, optional(c.Who), c.What, optional(c.Subject), c.Field, c.Old, c.New, optional(c.Reason)})
+		changes = append(changes, changeDocOf(c))
 	}
 	return writeObject(w, member{"schema", Schema}, member{"lot", f.Lot.Name}, member{"device", deviceDocOf(d)},
 		member{"role", string(d.Role)}, member{"note", optional(d.Note)}, member{"sweeps", sweeps}, member{"changes", changes})
+}
+
+func changeDocOf(c record.Change) changeDoc {
+	return changeDoc{c.At, optional(c.Who), c.What, optional(c.Subject), c.Field, c.Old, c.New, optional(c.Reason)}
 }

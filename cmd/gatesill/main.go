@@ -19,7 +19,7 @@ func run(args []string) int {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
 	defer stop()
 	root := newRoot()
-	root.SetArgs(storeFirst(args))
+	root.SetArgs(args)
 	err := root.ExecuteContext(ctx)
 	if err == nil {
 		return job.ExitDone

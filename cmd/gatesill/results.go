@@ -4,6 +4,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"gatesill/cmd/internal/job"
+	"gatesill/store/record"
 )
 
 // atFlag adds --at, the current at which V_GS(th) is taken.
@@ -162,4 +163,16 @@ them, and leaves files, store and reports in a folder. It may be run again.`,
 	}
 	cmd.Flags().StringVar(&dir, "out", "gatesill-demo", "`DIR` to leave everything in")
 	return cmd
+}
+
+// limitOf reads --limit: auto is 0.
+func limitOf(text string) (float64, error) {
+	if text == "auto" {
+		return 0, nil
+	}
+	x, err := record.ParseNumber(text, "")
+	if err != nil || x < 3 || x > 20 {
+		return 0, job.Usage("--limit auto, or a number from 3 to 20", "--limit %s: not from 3 to 20 robust spreads", text)
+	}
+	return x, nil
 }

@@ -40,7 +40,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
   gatesill spread bag1
   gatesill sort bag1 --width 50mV
   gatesill report bag1 -o bag1.html`,
-		SilenceUsage: true, SilenceErrors: true,
+		SilenceUsage: true, SilenceErrors: true, SuggestionsMinimumDistance: 2,
 		Args: func(cmd *cobra.Command, args []string) error {
 			if len(args) > 0 {
 				return unknownVerb(cmd, args[0])
@@ -73,10 +73,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	return root
 }
 
-// storeFirst lets --store stand before the verb, also as two words; cobra takes
-// it there already, so nothing has to move. It only refuses a lone --store.
-func storeFirst(args []string) []string { return args }
-
+// unknownVerb refuses a verb that does not exist, with the nearest that does.
 func unknownVerb(cmd *cobra.Command, verb string) error {
 	hint := "gatesill --help lists the verbs"
 	if s := cmd.SuggestionsFor(verb); len(s) > 0 {
@@ -119,7 +116,7 @@ func ask(env *job.Env) func(table.Question) (string, error) {
 	in := bufio.NewReader(os.Stdin)
 	return func(q table.Question) (string, error) {
 		for {
-			fmt.Fprintf(env.Err, "%s\n[%s] ? ", report.EscapeText(q.Text), strings.Join(q.Choices, ", "))
+			fmt.Fprintf(env.Err, "%s\n[%s] ? ", report.Clean(q.Text), strings.Join(q.Choices, ", "))
 			line, err := in.ReadString('\n')
 			answer := strings.TrimSpace(line)
 			if slices.Contains(q.Choices, answer) || answer != "" && len(q.Choices) == 0 {

@@ -268,5 +268,5 @@ Look at %s in a browser, then try:
   gatesill --store %s device show A09 --lot autumn
   gatesill --store %s device exclude A21 --lot autumn --reason 'open'
   gatesill --store %s sort spring --by vgsth --bins 3
-  gatesill import bag1 YOUR-FILE.csv --dry-run`, report.Escape(filepath.Join(d.dir, "autumn.html")), s, s, s)
+  gatesill import bag1 YOUR-FILE.csv --dry-run`, report.Clean(filepath.Join(d.dir, "autumn.html")), s, s, s)
 }

@@ -59,29 +59,24 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
 	if err != nil {
 		return err
 	}
-	h := report.History{Lot: sheet.Lot, Part: sheet.Part, Device: report.Device{Device: d}, TestCurrent: sheet.TestCurrent, IdleCurrent: sheet.IdleCurrent}
+	f := report.DeviceFile{Lot: sheet.Lot, Device: report.Device{Device: d}}
 	for _, dev := range sheet.Devices {
 		if dev.ID == d.ID {
-			h.Device = dev
-		}
-	}
-	for _, v := range sheet.Spread.Devices {
-		if v.Name == d.Name {
-			h.Verdict = v
+			f.Device = dev
 		}
 	}
 	err = env.view(ctx, func(tx *store.Tx) error {
 		var err error
-		h.Changes, err = tx.Changes("device", d.ID)
+		f.Changes, err = tx.Changes("device", d.ID)
 		return err
 	})
 	if err != nil {
 		return err
 	}
 	if env.JSON {
-		return report.HistoryJSON(env.Out, h)
+		return report.DeviceJSON(env.Out, f)
 	}
-	return report.HistoryText(env.Out, h, env.style())
+	return report.DeviceHistory(env.Out, f, sheet, env.style())
 }
 
 func (e *Env) findDevice(ctx context.Context, lot, name string) (d record.Device, l record.Lot, err error) {
@@ -115,15 +110,15 @@ func DeviceChange(ctx context.Context, env *Env, lot, name, reason string, chang
 	}
 	switch {
 	case before.Name != after.Name:
-		env.talk("device %s is now %s", report.Escape(before.Name), report.Escape(after.Name))
+		env.talk("device %s is now %s", report.Clean(before.Name), report.Clean(after.Name))
 	case before == after:
-		env.talk("device %s: nothing changed", report.Escape(name))
+		env.talk("device %s: nothing changed", report.Clean(name))
 	case before.Excluded != after.Excluded && after.Excluded:
-		env.talk("device %s is left out of every statistic; its readings are kept", report.Escape(name))
+		env.talk("device %s is left out of every statistic; its readings are kept", report.Clean(name))
 	case before.Excluded != after.Excluded:
-		env.talk("device %s counts again", report.Escape(name))
+		env.talk("device %s counts again", report.Clean(name))
 	default:
-		env.talk("device %s changed", report.Escape(name))
+		env.talk("device %s changed", report.Clean(name))
 	}
 	return nil
 }

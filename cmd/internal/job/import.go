@@ -36,6 +36,9 @@ type ImportRequest struct {
 	Stdin                      io.Reader
 }
 
+// fateDry is the fate of a file that was only looked at.
+const fateDry = "looked at, not stored"
+
 // stdinName stands for stdin where a file has a name.
 const stdinName = "stdin"
 
@@ -63,23 +66,43 @@ func Import(ctx context.Context, env *Env, rq ImportRequest) error {
 				return err
 			}
 			code = ExitFailed
-			f.Fate, f.Reason = "refused", reason(err)
+			f.Fate, f.Reason = report.FateRefused, reason(err)
 			tellError(env, err)
 		}
 		doc.Files = append(doc.Files, f)
-		if !env.JSON {
-			im.print(f)
-		}
 	}
-	if env.JSON {
-		if err := report.ImportJSON(env.Out, doc); err != nil {
-			return err
-		}
+	if err := im.conclude(doc); err != nil {
+		return err
 	}
 	if code != ExitDone {
 		return &Failure{Code: code}
 	}
 	return nil
+}
+
+// conclude tells the fate of the files: as JSON, as a table of several, or in a
+// line of the one. A refused file has been told on stderr.
+func (im *importer) conclude(doc report.ImportDoc) error {
+	switch {
+	case im.env.JSON:
+		return report.ImportJSON(im.env.Out, doc)
+	case im.env.Quiet:
+		return nil
+	case len(doc.Files) > 1:
+		if _, err := fmt.Fprintln(im.env.Out); err != nil {
+			return err
+		}
+		return report.ImportTable(im.env.Out, doc, im.env.style())
+	case doc.Files[0].Fate == report.FateRefused:
+		return nil
+	}
+	f := doc.Files[0]
+	why := ""
+	if f.Reason != "" {
+		why = ": " + f.Reason
+	}
+	_, err := fmt.Fprintf(im.env.Out, "lot %s: %s %s%s\n", report.Clean(doc.Lot), report.Clean(f.File), f.Fate, report.Clean(why))
+	return err
 }
 
 // importer carries what the files of one import share.
@@ -94,6 +117,8 @@ type importer struct {
 	part    record.Part
 	seen    map[string]string // data hash -> device, over the lot and the files of this import
 	next    int               // position of the next sweep
+	same    string            // how the file before was read
+	sameAs  string            // its name
 }
 
 // prepare reads the bench file and looks whether store and lot are there.
@@ -106,7 +131,7 @@ func (im *importer) prepare(ctx context.Context) error {
 		im.bench = b
 		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
 		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			im.env.warn("the calibration of the %s meter %s was due on %s", m.Role, report.Escape(m.Name), m.Due)
+			im.env.warn("the calibration of the %s meter %s was due on %s", m.Role, report.Clean(m.Name), m.Due)
 		}
 	}
 	im.seen = map[string]string{}
@@ -169,19 +194,21 @@ func (im *importer) close() {
 	if im.db == nil {
 		return
 	}
+	var err error
 	if im.made && !im.stored {
-		if err := im.db.Remove(); err != nil {
-			im.env.warn("%v", err)
-		}
-	} else if err := im.db.Close(); err != nil {
+		_, err = im.db.RemoveIfEmpty(context.Background())
+	} else {
+		err = im.db.Close()
+	}
+	if err != nil {
 		im.env.warn("%v", err)
 	}
 	im.db = nil
 }
 
 // one reads and stores one file.
-func (im *importer) one(ctx context.Context, name string) (report.ImportedFile, error) {
-	out := report.ImportedFile{File: name}
+func (im *importer) one(ctx context.Context, name string) (report.ImportFile, error) {
+	out := report.ImportFile{File: name}
 	data, display, err := im.bytes(name)
 	if err != nil {
 		return out, err
@@ -192,8 +219,8 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportedFile, 
 	if prior, ok, err := im.seenBefore(ctx, name, data); err != nil {
 		return out, err
 	} else if ok && !im.rq.Again {
-		out.Fate, out.Layout = "seen before", prior.Layout
-		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; --again imports them once more", report.Escape(prior.Name), prior.ImportedAt[:10])
+		out.Fate, out.Layout = report.FateSeen, prior.Layout
+		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; --again imports them once more", report.Clean(prior.Name), prior.ImportedAt[:10])
 		return out, nil
 	}
 	opt, progress := im.options(ctx, display)
@@ -212,8 +239,6 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportedFile, 
 		return out, err
 	}
 	out.Layout, out.Dialect, out.RowsRefused = f.Layout, f.Dialect, f.Refused
-	out.Read = f
-	out.OtherLots = left
 	out.Sweeps = len(sweeps)
 	devices := map[string]bool{}
 	for i := range sweeps {
@@ -222,14 +247,26 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportedFile, 
 	}
 	out.Devices = len(devices)
 	im.tell(f, sweeps)
+	if !im.env.JSON && !im.env.Quiet {
+		like := ""
+		same := sameReading(f, sweeps)
+		if same == im.same {
+			like = im.sameAs
+		} else {
+			im.same, im.sameAs = same, f.Name
+		}
+		if err := recognised(im.env.Out, f, sweeps, left, like); err != nil {
+			return out, err
+		}
+	}
 	if im.rq.DryRun {
-		out.Fate = "not stored"
+		out.Fate = fateDry
 		return out, nil
 	}
 	if err := im.store(ctx, f, sweeps); err != nil {
 		return out, err
 	}
-	out.Fate = "stored"
+	out.Fate = report.FateStored
 	return out, nil
 }
 
@@ -304,7 +341,7 @@ func (im *importer) options(ctx context.Context, name string) (table.Options, *p
 		})
 		return m, ok && err == nil
 	}
-	p := newProgress(im.env, report.Escape(name))
+	p := newProgress(im.env, report.Clean(name))
 	opt.Progress = p.At
 	return opt, p
 }
@@ -320,7 +357,7 @@ func (im *importer) ofLot(f *table.File) ([]table.Sweep, map[string]int, error) 
 	if len(byLot) == 1 && im.rq.Table.LotColumn == "" || byLot[""] == len(f.Sweeps) {
 		for l := range byLot {
 			if l != "" && l != im.rq.Lot {
-				im.env.warn("%s: its lot column says %s, stored in lot %s as asked", report.Escape(f.Name), report.Escape(l), report.Escape(im.rq.Lot))
+				im.env.warn("%s: its lot column says %s, stored in lot %s as asked", report.Clean(f.Name), report.Clean(l), report.Clean(im.rq.Lot))
 			}
 		}
 		return f.Sweeps, nil, nil
@@ -348,18 +385,18 @@ func (im *importer) ofLot(f *table.File) ([]table.Sweep, map[string]int, error) 
 // tell warns of what the reader noticed and of rows known under another name.
 func (im *importer) tell(f *table.File, sweeps []table.Sweep) {
 	for _, r := range f.Remarks {
-		im.env.warn("%s: %s [%s]", report.Escape(f.Name), r.Text, r.Code)
+		im.env.warn("%s: %s [%s]", report.Clean(f.Name), r.Text, r.Code)
 	}
 	noCircuit := false
 	for i := range sweeps {
 		s := &sweeps[i]
 		noCircuit = noCircuit || s.Condition.Circuit == record.NoCircuit && s.Direction != record.Spot
 		if other, ok := im.seen[s.DataHash]; ok && other != s.Device {
-			im.env.warn("%s: device %s has the same rows as device %s [same-rows]", report.Escape(f.Name), report.Escape(s.Device), report.Escape(other))
+			im.env.warn("%s: device %s has the same rows as device %s [same-rows]", report.Clean(f.Name), report.Clean(s.Device), report.Clean(other))
 		}
 	}
 	if noCircuit {
-		im.env.warn("%s: circuit not given, so only constant-current values will be had; --circuit load, diode or fixed tells it [no-circuit]", report.Escape(f.Name))
+		im.env.warn("%s: circuit not given, so only constant-current values will be had; --circuit load, diode or fixed tells it [no-circuit]", report.Clean(f.Name))
 	}
 }
 
@@ -512,16 +549,6 @@ func (im *importer) sessionFor(tx *store.Tx, lot record.Lot, sweeps []table.Swee
 	return s.ID, err
 }
 
-// print says what became of one file, for people.
-func (im *importer) print(f report.ImportedFile) {
-	if im.env.Quiet && f.Fate != "refused" {
-		return
-	}
-	if err := report.ImportText(im.env.Out, im.rq.Lot, f, im.env.style()); err != nil {
-		im.env.warn("%v", err)
-	}
-}
-
 // merge fills what a leaves unknown from b.
 func merge(a, b record.Condition) record.Condition {
 	text := func(x, y string) string {
@@ -567,8 +594,8 @@ func WriteError(w io.Writer, err error) {
 	case errors.As(err, &t):
 		hint = t.Hint
 	}
-	fmt.Fprintf(w, "gatesill: error: %s\n", report.EscapeText(err.Error()))
+	fmt.Fprintf(w, "gatesill: error: %s\n", report.Clean(err.Error()))
 	if hint != "" {
-		fmt.Fprintf(w, "gatesill: hint: %s\n", report.EscapeText(hint))
+		fmt.Fprintf(w, "gatesill: hint: %s\n", report.Clean(hint))
 	}
 }

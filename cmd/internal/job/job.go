@@ -106,34 +106,15 @@ func (e *Env) open(ctx context.Context, create, readOnly bool) (*store.DB, error
 	return db, nil
 }
 
-// hints of the store's errors that it does not bring itself.
-var storeHints = []struct {
-	err  error
-	hint string
-}{
-	{store.ErrNoStore, "gatesill import LOT FILE makes one; --store PATH names another"},
-	{store.ErrNotOurs, "--store PATH names another file"},
-	{store.ErrNewer, "use the newer program that wrote it"},
-	{store.ErrCorrupt, "go back to your last copy made by gatesill backup FILE, and keep the damaged file"},
-	{store.ErrReadOnly, "make file and folder writable, or work on a copy"},
-	{store.ErrFull, "free some space and try again; nothing was stored halfway"},
-	{store.ErrBusy, "wait until the other program is done, then try again"},
-}
-
 // storeFailure adds exit code and hint to an error of the store.
 func storeFailure(err error) error {
 	var f *Failure
 	if err == nil || errors.As(err, &f) || errors.Is(err, context.Canceled) {
 		return err
 	}
-	var withHint interface{ Hint() string }
-	if errors.As(err, &withHint) && withHint.Hint() != "" {
-		return &Failure{Code: ExitFailed, Err: err, Hint: withHint.Hint()}
-	}
-	for _, h := range storeHints {
-		if errors.Is(err, h.err) {
-			return &Failure{Code: ExitFailed, Err: err, Hint: h.hint}
-		}
+	var of *store.Error
+	if errors.As(err, &of) {
+		return &Failure{Code: ExitFailed, Err: err, Hint: of.Hint}
 	}
 	return &Failure{Code: ExitFailed, Err: err}
 }

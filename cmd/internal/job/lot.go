@@ -111,7 +111,7 @@ func LotAdd(ctx context.Context, env *Env, name string, edit LotEdit) error {
 		return err
 	}
 	env.tellShared(shared, name)
-	env.talk("lot %s added", report.Escape(name))
+	env.talk("lot %s added", report.Clean(name))
 	return nil
 }
 
@@ -159,7 +159,7 @@ func LotEditJob(ctx context.Context, env *Env, name string, edit LotEdit, reason
 		return err
 	}
 	env.tellShared(shared, name)
-	env.talk("lot %s changed", report.Escape(name))
+	env.talk("lot %s changed", report.Clean(name))
 	return nil
 }
 
@@ -182,7 +182,7 @@ func (e *Env) tellShared(lots []string, but string) {
 	var others []string
 	for _, l := range lots {
 		if l != but {
-			others = append(others, report.Escape(l))
+			others = append(others, report.Clean(l))
 		}
 	}
 	if len(others) > 0 {
@@ -200,7 +200,7 @@ func invalid(err error) error {
 
 // LotList lists all lots.
 func LotList(ctx context.Context, env *Env) error {
-	var lots []report.LotLine
+	var lots []report.LotRow
 	err := env.view(ctx, func(tx *store.Tx) error {
 		ls, err := tx.Lots()
 		if err != nil {
@@ -211,7 +211,7 @@ func LotList(ctx context.Context, env *Env) error {
 			if err != nil {
 				return err
 			}
-			lots = append(lots, report.LotLine{Lot: l, Part: p})
+			lots = append(lots, report.LotRow{Lot: l, Part: p})
 		}
 		return nil
 	})
@@ -226,36 +226,41 @@ func LotList(ctx context.Context, env *Env) error {
 
 // LotShow shows one lot with its part, its devices and what was changed.
 func LotShow(ctx context.Context, env *Env, name string) error {
-	var d report.LotDetail
+	var f report.LotFile
 	err := env.view(ctx, func(tx *store.Tx) error {
 		var err error
-		if d.Lot, d.Part, err = lotOf(tx, name); err != nil {
+		if f.Lot, f.Part, err = lotOf(tx, name); err != nil {
 			return err
 		}
-		if d.Devices, err = tx.Devices(d.Lot.ID); err != nil {
+		if f.Devices, err = tx.Devices(f.Lot.ID); err != nil {
 			return err
 		}
-		if d.Sources, err = tx.Sources(d.Lot.ID); err != nil {
+		if f.Sources, err = tx.Sources(f.Lot.ID); err != nil {
 			return err
 		}
-		if d.Sessions, err = tx.Sessions(d.Lot.ID); err != nil {
+		if f.Sessions, err = tx.Sessions(f.Lot.ID); err != nil {
 			return err
 		}
-		of, err := tx.Changes("part", d.Part.ID)
+		sweeps, err := tx.Sweeps(f.Lot.ID, false)
 		if err != nil {
 			return err
 		}
-		d.Changes, err = tx.Changes("lot", d.Lot.ID)
-		d.Changes = append(of, d.Changes...)
+		f.Lot.DevicesCount, f.Lot.SweepsCount = len(f.Devices), len(sweeps)
+		of, err := tx.Changes("part", f.Part.ID)
+		if err != nil {
+			return err
+		}
+		f.Changes, err = tx.Changes("lot", f.Lot.ID)
+		f.Changes = append(of, f.Changes...)
 		return err
 	})
 	if err != nil {
 		return err
 	}
 	if env.JSON {
-		return report.LotJSON(env.Out, d)
+		return report.LotFileJSON(env.Out, f)
 	}
-	return report.LotText(env.Out, d, env.style())
+	return report.LotFileText(env.Out, f, env.style())
 }
 
 // LotRename gives a lot another name.
@@ -280,7 +285,7 @@ func LotRename(ctx context.Context, env *Env, name, to, reason string) error {
 		return tx.RenameLot(lot.ID, to, reason)
 	})
 	if err == nil {
-		env.talk("lot %s is now %s", report.Escape(name), report.Escape(to))
+		env.talk("lot %s is now %s", report.Clean(name), report.Clean(to))
 	}
 	return err
 }
@@ -296,7 +301,7 @@ func Quote(name string) string {
 }
 
 func (e *Env) style() report.Style {
-	return report.Style{Color: e.Color, Width: e.Width, Verbose: e.Verbose}
+	return report.Style{Color: e.Color, Width: e.Width}
 }
 
 // count writes "1 device" or "3 devices".

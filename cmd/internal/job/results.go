@@ -156,7 +156,7 @@ func Report(ctx context.Context, env *Env, name, path string, o SheetOptions) er
 		return err
 	}
 	if path != "-" {
-		env.talk("report of lot %s: %s", report.Escape(name), report.Escape(path))
+		env.talk("report of lot %s: %s", report.Clean(name), report.Clean(path))
 	}
 	return nil
 }
@@ -187,7 +187,7 @@ func Export(ctx context.Context, env *Env, name, path string, points bool, o She
 		return err
 	}
 	if path != "-" {
-		env.talk("%s of lot %s: %s", count(len(s.Devices), "device"), report.Escape(name), report.Escape(path))
+		env.talk("%s of lot %s: %s", count(len(s.Devices), "device"), report.Clean(name), report.Clean(path))
 	}
 	return nil
 }
@@ -205,7 +205,7 @@ func Backup(ctx context.Context, env *Env, path string) error {
 	if err != nil {
 		return storeFailure(err)
 	}
-	env.talk("copy of %s: %s", report.Escape(db.Path()), report.Escape(path))
+	env.talk("copy of %s: %s", report.Clean(db.Path()), report.Clean(path))
 	return nil
 }
 

@@ -74,7 +74,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	if err := keepNamed(&s, o.Devices); err != nil {
 		return s, err
 	}
-	s.Version = e.Version
+	s.Version, s.Codes = e.Version, fit.Codes
 	placeSweeps(&s, sweeps)
 	currents(&s, o.At)
 	if err := fitSheet(ctx, &s, o.Method); err != nil {
@@ -242,7 +242,7 @@ func setupOf(s *report.Sheet, sw *record.Sweep) fit.Setup {
 		Circuit: fit.Circuit(c.Circuit), PChannel: s.Part.Channel == record.PChannel, Depletion: s.Part.Mode == record.Depletion,
 		OffV: offVoltage(s.Part),
 		RL:   c.RL.Float(), RLTol: c.RLTol.Float(), Vdd: c.VDD.Float(), Vds: c.VDS.Float(), Burden: burden(sw),
-		TestCurrent: s.TestCurrent, IdleCurrent: s.IdleCurrent, MaxID: s.Part.MaxID.Float(),
+		TestCurrent: s.TestCurrent, IdleCurrent: s.IdleCurrent, MaxID: s.Part.MaxID.Float(), VgsthMax: s.Part.VgsthMax.Float(),
 		Gate: accuracy(sw, "gate"), Current: accuracy(sw, "current"), Load: accuracy(sw, "load"), Drain: accuracy(sw, "drain"),
 		Spot: sw.Direction == record.Spot, Temperature: c.Temp.Float(),
 	}
@@ -325,8 +325,8 @@ func fitDevice(s *report.Sheet, d *report.Device, method string) {
 			continue
 		}
 		setup := setupOf(s, &sw.Sweep)
-		setup.Method = method
 		sw.Result = fit.One(sw.Curve, setup)
+		sw.Result.Choose(method)
 		rs = append(rs, sw.Result)
 		dirs = append(dirs, string(sw.Direction))
 	}

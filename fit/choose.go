@@ -1,0 +1,31 @@
+package fit
+
+// CodeMethodNotValid: the method asked for has no value in the region covered.
+const CodeMethodNotValid = "method-not-valid"
+
+// Choose makes the extrapolated threshold of one method the one that is shown:
+// "sqrt", "linear" or "ratio"; "current" shows none, "auto" leaves the choice
+// by region as it is. Where the method is not valid for the points, the
+// extrapolated threshold is taken back and a warning says so.
+func (r *Result) Choose(method string) {
+	if method == "auto" || method == "" || r.Method == method {
+		return
+	}
+	had := r.Vt.Ok()
+	r.Vt, r.Beta = None(), None()
+	if method != "ratio" {
+		r.Theta = None()
+	}
+	r.Method = "current"
+	if method == "current" {
+		return
+	}
+	if t, ok := r.VtBy[method]; ok {
+		r.Vt, r.Beta, r.Method = t.Vt, t.Beta, method
+		return
+	}
+	if had || r.State == Measured {
+		r.Warnings = append(r.Warnings, Warning{CodeMethodNotValid,
+			"The method " + method + " is not valid in the region that the points cover: no extrapolated threshold by it."})
+	}
+}
