@@ -4,7 +4,6 @@ package store
 
 import (
 	"context"
-	"fmt"
 	"math/rand/v2"
 	"os"
 	"path/filepath"
@@ -49,21 +48,6 @@ func inventedSweeps(lotID string, devices []record.Device, points int) []record.
 		line += points
 	}
 	return ss
-}
-
-// addLot makes a part and a lot with that many devices D0001, D0002, ...
-func addLot(tb testing.TB, tx *Tx, name string, devices int) (record.Lot, []record.Device) {
-	tb.Helper()
-	p := record.NewPart("invented part")
-	require.NoError(tb, tx.PutPart(&p, ""))
-	l := record.Lot{Name: name, PartID: p.ID}
-	require.NoError(tb, tx.PutLot(&l, ""))
-	ds := make([]record.Device, devices)
-	for i := range ds {
-		ds[i] = record.Device{Name: fmt.Sprintf("D%04d", i+1), Role: record.Sample}
-	}
-	require.NoError(tb, tx.AddDevices(l.ID, ds))
-	return l, ds
 }
 
 // cpuTime is the processor time this process has used.

@@ -36,6 +36,9 @@ func (k kind) update(tx *Tx, noun, id, reason string, old, values []any) error {
 			continue
 		}
 		changed = true
+		if _, ok := values[i].(ref); ok {
+			column = strings.TrimSuffix(column, "_id")
+		}
 		if err := tx.enter(k.table, id, column, before, after, reason); err != nil {
 			return err
 		}
@@ -69,8 +72,8 @@ func asText(v any) string {
 	return fmt.Sprint(v)
 }
 
-// ref is the id of another row, NULL when it is empty, that the audit trail
-// shows by its name.
+// ref is the id of another row, NULL when it is empty. The audit trail shows the
+// name of that row, under the column's name without _id.
 type ref struct{ id, name string }
 
 // Value gives the driver the id.

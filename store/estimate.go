@@ -3,11 +3,7 @@ package store
 import (
 	"database/sql"
 	"encoding/json"
-	"errors"
 	"fmt"
-	"maps"
-	"slices"
-	"strconv"
 
 	"gatesill/store/record"
 )
@@ -34,18 +30,17 @@ type estimatePutter struct {
 	tx         *Tx
 	insert     *sql.Stmt
 	procedures map[[3]string]string // id by method, settings, version
+	hashes     map[string]string    // data hash by sweep, of the lots met so far
 	json       []byte               // scratch
 }
 
 func (tx *Tx) newEstimatePutter() (*estimatePutter, error) {
-	// Nothing is selected, and so nothing added, when the sweep has other data.
 	insert, err := tx.sql.PrepareContext(tx.ctx, `INSERT INTO estimate (sweep_id, procedure_id, data_hash, made_at, state, estimates, remarks)
-		SELECT id, ?, data_hash, ?, ?, ?, ? FROM sweep WHERE id = ? AND data_hash = ?
-		ON CONFLICT DO NOTHING`)
+		VALUES (?, ?, ?, ?, ?, ?, ?) ON CONFLICT DO NOTHING`)
 	if err != nil {
 		return nil, tx.fail("estimates", err)
 	}
-	return &estimatePutter{tx: tx, insert: insert, procedures: map[[3]string]string{}}, nil
+	return &estimatePutter{tx: tx, insert: insert, procedures: map[[3]string]string{}, hashes: map[string]string{}}, nil
 }
 
 func (p *estimatePutter) put(e *record.Estimate) error {
@@ -53,6 +48,9 @@ func (p *estimatePutter) put(e *record.Estimate) error {
 		e.MadeAt = record.Now()
 	}
 	if err := record.CheckStamp("time of making", e.MadeAt); err != nil {
+		return err
+	}
+	if err := p.fits(e); err != nil {
 		return err
 	}
 	procedure, err := p.procedure(e)
@@ -68,28 +66,40 @@ func (p *estimatePutter) put(e *record.Estimate) error {
 		remarks = string(b)
 	}
 	p.json = appendEstimates(p.json[:0], e.Values)
-	result, err := p.insert.ExecContext(p.tx.ctx, procedure, e.MadeAt, e.State, string(p.json), remarks, e.SweepID, e.DataHash)
-	if err != nil {
-		return p.tx.fail("estimate", err)
-	}
-	if n, err := result.RowsAffected(); err != nil || n == 1 {
-		return p.tx.fail("estimate", err)
-	}
-	return p.kept(e, procedure)
+	_, err = p.insert.ExecContext(p.tx.ctx, e.SweepID, procedure, e.DataHash, e.MadeAt, e.State, string(p.json), remarks)
+	return p.tx.fail("estimate", err)
 }
 
-// kept says why nothing was added, unless the estimate is there already.
-func (p *estimatePutter) kept(e *record.Estimate, procedure string) error {
-	_, err := one(p.tx, "estimate", text, `SELECT made_at FROM estimate WHERE sweep_id = ? AND procedure_id = ? AND data_hash = ?`,
-		e.SweepID, procedure, e.DataHash)
-	if !errors.Is(err, ErrNotFound) {
-		return err
+// fits checks that the estimate was made from the data that its sweep has.
+func (p *estimatePutter) fits(e *record.Estimate) error {
+	hash, ok := p.hashes[e.SweepID]
+	if !ok {
+		if err := p.meet(e.SweepID); err != nil {
+			return err
+		}
+		if hash, ok = p.hashes[e.SweepID]; !ok {
+			return ErrNotFound
+		}
 	}
-	hash, err := one(p.tx, "sweep", text, `SELECT data_hash FROM sweep WHERE data_hash IS NOT NULL AND id = ?`, e.SweepID)
-	if err != nil {
-		return err
+	if e.DataHash != hash {
+		return fmt.Errorf("it was made from data %s, the sweep has %s: %w", e.DataHash, hash, record.ErrInvalid)
 	}
-	return fmt.Errorf("it was made from data %s, the sweep has %s: %w", e.DataHash, hash, record.ErrInvalid)
+	return nil
+}
+
+// meet looks up the hash of a sweep, with those of all complete sweeps of its
+// lot.
+func (p *estimatePutter) meet(sweepID string) error {
+	pairs, err := all(p.tx, "sweeps", func(r row) (s [2]string, err error) {
+		err = r.Scan(&s[0], &s[1])
+		return s, err
+	}, `SELECT sweep.id, data_hash FROM sweep JOIN device ON device.id = sweep.device_id
+		WHERE data_hash IS NOT NULL AND lot_id = (
+			SELECT lot_id FROM sweep JOIN device ON device.id = sweep.device_id WHERE sweep.id = ?)`, sweepID)
+	for _, s := range pairs {
+		p.hashes[s[0]] = s[1]
+	}
+	return err
 }
 
 // procedure gives the id of method, settings and version, which it keeps if
@@ -108,46 +118,6 @@ func (p *estimatePutter) procedure(e *record.Estimate) (string, error) {
 	return id, nil
 }
 
-// appendEstimates writes the values as a JSON object, the keys in order, what
-// is not known left out.
-func appendEstimates(b []byte, values map[string]record.Value) []byte {
-	b = append(b, '{')
-	for i, key := range slices.Sorted(maps.Keys(values)) {
-		if i > 0 {
-			b = append(b, ',')
-		}
-		v := values[key]
-		b = append(appendText(b, key), ":{"...)
-		start := len(b)
-		for _, f := range []struct {
-			name string
-			n    record.Num
-		}{{`"value":`, v.Value}, {`"u":`, v.U}, {`"u_between":`, v.UBetween}, {`"u_absolute":`, v.UAbsolute}} {
-			if x, ok := f.n.Get(); ok {
-				b = strconv.AppendFloat(append(b, f.name...), x, 'g', -1, 64)
-				b = append(b, ',')
-			}
-		}
-		if v.N != 0 {
-			b = append(strconv.AppendInt(append(b, `"n":`...), int64(v.N), 10), ',')
-		}
-		if len(b) > start {
-			b = b[:len(b)-1] // the last comma
-		}
-		b = append(b, '}')
-	}
-	return append(b, '}')
-}
-
-// appendText writes a text as a JSON string.
-func appendText(b []byte, s string) []byte {
-	q, err := json.Marshal(s)
-	if err != nil { // no text fails
-		return append(b, `""`...)
-	}
-	return append(b, q...)
-}
-
 const selectEstimate = `SELECT estimate.sweep_id, estimate.data_hash, method, settings, version, state, estimates, remarks, made_at
 	FROM estimate JOIN fit_procedure ON fit_procedure.id = estimate.procedure_id
 	JOIN sweep ON sweep.id = estimate.sweep_id JOIN device ON device.id = sweep.device_id `
@@ -157,7 +127,7 @@ func scanEstimate(r row) (e record.Estimate, err error) {
 	if err := r.Scan(&e.SweepID, &e.DataHash, &e.Method, &e.Settings, &e.Version, &e.State, &values, maybe{&remarks}, stamp{&e.MadeAt}); err != nil {
 		return e, err
 	}
-	if err := json.Unmarshal([]byte(values), &e.Values); err != nil {
+	if e.Values, err = parseEstimates(values); err != nil {
 		return e, fmt.Errorf("%w: estimate of sweep %s: %w", ErrCorrupt, e.SweepID, err)
 	}
 	if remarks != "" {

@@ -21,7 +21,7 @@ func selectSweep(withData bool, where string) string {
 		data = `, source_lines, marks, ` + dataColumns
 	}
 	return `SELECT sweep.id, device.lot_id, device_id, session_id, source_id, position, direction, measured_at, sweep.excluded, sweep.why, ` +
-		conditionColumns + `, instruments_id, data_hash, points` + data + `
+		conditionColumns + `, instruments_id, data_hash, coalesce(points, 0)` + data + `
 		FROM sweep JOIN device ON device.id = sweep.device_id
 		WHERE ` + where
 }
@@ -83,7 +83,7 @@ func (r *sweepReader) scan(from row) (s record.Sweep, err error) {
 		stamp{&s.MeasuredAt}, &s.Excluded, &s.Why,
 		&c.Circuit, &c.RL, &c.RLTol, &c.RLRating, &c.VDD, &c.VDS, &c.Ammeter, &c.Burden, &c.GateReturn,
 		&c.Pulsed, &c.PulseWidth, &c.PulseDuty, &c.PulseDelay, &c.Dwell, &c.Temp, &c.TempOf, &c.SpotCurrent,
-		maybe{&instruments}, &s.DataHash, &s.Points}
+		maybe{&instruments}, maybe{&s.DataHash}, &s.Points}
 	data := make([]string, len(record.Quantities))
 	if r.withData {
 		to = append(to, maybe{&lines}, maybe{&marks})

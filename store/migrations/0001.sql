@@ -252,7 +252,7 @@ CREATE TABLE change (
 	who        TEXT NOT NULL,
 	what       TEXT NOT NULL CHECK (what IN ('part', 'lot', 'device', 'sweep')),
 	subject_id TEXT NOT NULL,
-	field      TEXT NOT NULL, -- name of the column
+	field      TEXT NOT NULL, -- name of the column; 'part' and 'package' stand for part_id and package_id, by their names
 	old_value  TEXT NOT NULL, -- '' was not known, or empty
 	new_value  TEXT NOT NULL,
 	reason     TEXT NOT NULL

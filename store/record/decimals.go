@@ -40,7 +40,7 @@ func ParseDecimals(dst []float64, text []byte) ([]float64, error) {
 		return dst, endOfArray(text, i)
 	}
 	for {
-		x, n, err := parseDecimal(text, i)
+		x, n, err := ParseDecimal(text, i)
 		if err != nil {
 			return dst, err
 		}
@@ -93,9 +93,9 @@ var powersOfTen = [...]float64{
 	1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22,
 }
 
-// parseDecimal reads the number or null at t[i:] and returns the index behind
-// it.
-func parseDecimal(t []byte, i int) (float64, int, error) {
+// ParseDecimal reads the JSON number or null at t[i:], as [ParseDecimals] reads
+// those of an array, and returns the index behind it.
+func ParseDecimal(t []byte, i int) (x float64, next int, err error) {
 	start := i
 	negative := i < len(t) && t[i] == '-'
 	if negative {
@@ -146,8 +146,7 @@ func parseDecimal(t []byte, i int) (float64, int, error) {
 		}
 		return x, i, nil
 	}
-	x, err := strconv.ParseFloat(string(t[start:i]), 64)
-	if err != nil {
+	if x, err = strconv.ParseFloat(string(t[start:i]), 64); err != nil {
 		return 0, start, decimalError(t, start, "a number that float64 can hold")
 	}
 	return x, i, nil
