@@ -172,3 +172,9 @@ func soon(t *testing.T, f func()) {
 		t.Fatal("still not done after a minute")
 	}
 }
+
+// say prints a line to the test that started this process.
+func say(words ...any) { fmt.Println(words...) }
+
+// waitForEnd waits until the test closes the input of this process.
+func waitForEnd() { _, _ = io.Copy(io.Discard, os.Stdin) }

@@ -279,19 +279,28 @@ func (db *DB) connect(ctx context.Context) error {
 		if err == nil {
 			return db.connectReaders(ctx, url.Values{"_pragma": {"query_only(1)"}})
 		}
-		if !errors.Is(named(err), ErrReadOnly) && !isCode(err, sqlite3.SQLITE_CANTOPEN) {
+		if !cannotWrite(err) {
 			return err
 		}
 		db.readOnly = true
 	}
 	err := db.connectReaders(ctx, url.Values{"mode": {"ro"}})
-	if isCode(err, sqlite3.SQLITE_CANTOPEN) && !db.hasLog() {
-		// A folder that cannot be written has no room for the files that
-		// readers and writers share. Nobody writes there, so they are not
-		// needed.
-		err = db.connectReaders(ctx, url.Values{"mode": {"ro"}, "immutable": {"1"}})
+	if !cannotWrite(err) {
+		return err
 	}
-	return err
+	// A folder that cannot be written has no room for the file that readers and
+	// writers share. Nobody writes there, so it is not needed, unless a crash
+	// left data in the log, which are found only by that file.
+	if db.hasLog() {
+		return fmt.Errorf("%w: data in its write-ahead log can be read only where the folder can be written: %w", ErrReadOnly, err)
+	}
+	return db.connectReaders(ctx, url.Values{"mode": {"ro"}, "immutable": {"1"}})
+}
+
+// cannotWrite reports whether err may come from a file or a folder that cannot
+// be written.
+func cannotWrite(err error) bool {
+	return errors.Is(err, ErrReadOnly) || isCode(err, sqlite3.SQLITE_READONLY) || isCode(err, sqlite3.SQLITE_CANTOPEN)
 }
 
 // hasLog reports whether a write-ahead log with content lies beside the file.

@@ -121,7 +121,7 @@ func unpack(s *record.Sweep, lines, marks string, data []string) (err error) {
 		text := []byte(data[i])
 		values, err := record.ParseDecimals(make([]float64, 0, min(s.Points, len(text))), text)
 		if err != nil {
-			return fmt.Errorf("%w: column %s: %w", ErrCorrupt, q, err)
+			return fmt.Errorf("%w: column %s: %v", ErrCorrupt, q, err)
 		}
 		if len(values) != s.Points {
 			return fmt.Errorf("%w: column %s has %d of %d points", ErrCorrupt, q, len(values), s.Points)

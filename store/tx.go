@@ -117,7 +117,9 @@ func (tx *Tx) fail(noun string, err error) error {
 		return fmt.Errorf("%s: %w", noun, ErrNotFound)
 	}
 	err = named(err)
-	switch { // not about the file
+	switch {
+	case errors.Is(err, ErrCorrupt):
+	// What follows is not about the file.
 	case errors.Is(err, ErrExists):
 		return fmt.Errorf("%s: %w", noun, ErrExists)
 	case errors.Is(err, ErrNotFound):
