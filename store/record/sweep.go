@@ -138,6 +138,7 @@ type Session struct {
 	ID        string // UUIDv7
 	Name      string // as the person calls it, "" allowed
 	Bench     string
+	BenchID   string // of the bench file's text as it was used, "" not kept
 	Operator  string
 	Fixture   string
 	Ambient   Num // deg C
@@ -172,7 +173,8 @@ type Sweep struct {
 	Columns     []Column // every column has the same length
 	Marks       []Mark   // ascending by Index
 	Lines       []Lines  // ascending by Point
-	DataHash    string   // SHA-256 over columns and marks, hex
+	DataHash    string   // of [Sweep.Hash]
+	Points      int      // number of points; filled by queries, also where Columns are left out
 	Excluded    bool
 	Why         string
 }
@@ -247,7 +249,7 @@ type Remark struct {
 // Version names it: the same key adds nothing, another key adds a row.
 type Estimate struct {
 	SweepID  string
-	DataHash string
+	DataHash string // of the sweep it was made from
 	Method   string
 	Settings string // canonical JSON of all that the result depends on besides the data
 	Version  string // of the program

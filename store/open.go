@@ -1,0 +1,400 @@
+package store
+
+import (
+	"context"
+	"database/sql"
+	"encoding/binary"
+	"errors"
+	"fmt"
+	"io"
+	"io/fs"
+	"net/url"
+	"os"
+	"path/filepath"
+	"strconv"
+	"sync"
+	"time"
+
+	sqlite3 "modernc.org/sqlite/lib"
+)
+
+// applicationID marks a file as a store of ours in SQLite's header ("GSil").
+const applicationID = 0x4753696c
+
+// pageSizePragma suits rows of a few kilobytes, as sweeps are: measured with
+// 5,000 sweeps of 200 points, 19 bytes a point against 23 with pages of 4 or 8
+// KiB, and less time. It has an effect only on an empty file.
+const pageSizePragma = "page_size(16384)"
+
+// Options say how a store is opened.
+type Options struct {
+	Create   bool          // make the store, and its folder, where there is none
+	ReadOnly bool          // change nothing
+	Wait     time.Duration // for another writer; 0: 5 s, negative: not at all
+	Who      string        // name of the user, for the audit trail
+}
+
+// DB is an open store. It may be used by several goroutines at once.
+type DB struct {
+	path     string
+	who      string
+	info     os.FileInfo // of the file that was opened
+	created  bool
+	readOnly bool
+	wait     time.Duration
+	made     []string // folders that Open made, the outermost first
+
+	reads   *sql.DB
+	writes  *sql.DB       // one connection; nil when read-only
+	writing chan struct{} // holds a token while nobody in this process writes
+}
+
+// Open opens the store at path.
+//
+// Errors: [ErrNoStore] when there is none and it was not to be made,
+// [ErrNotOurs], [ErrNewer], [ErrCorrupt], [ErrReadOnly], [ErrFull], [ErrBusy],
+// each as an [*Error] with the path and a hint. A file that is refused is not
+// changed. An older store is copied beside itself, then brought up to date. A
+// store that cannot be written is opened for reading, as [DB.ReadOnly] tells.
+func Open(ctx context.Context, path string, o Options) (*DB, error) {
+	return open(ctx, path, o, migrations)
+}
+
+func open(ctx context.Context, path string, o Options, steps []migration) (*DB, error) {
+	full, err := filepath.Abs(path)
+	if err != nil {
+		return nil, wrap(path, err)
+	}
+	db := &DB{path: full, who: o.Who, readOnly: o.ReadOnly, wait: o.Wait, writing: make(chan struct{}, 1)}
+	db.writing <- struct{}{}
+	if db.wait == 0 {
+		db.wait = 5 * time.Second
+	}
+	if err := db.open(ctx, o.Create && !o.ReadOnly, steps); err != nil {
+		closed := db.Close()
+		if db.created {
+			closed = errors.Join(closed, db.remove())
+		}
+		return nil, errors.Join(wrap(full, err), closed)
+	}
+	return db, nil
+}
+
+func (db *DB) open(ctx context.Context, create bool, steps []migration) error {
+	head, err := db.look()
+	switch {
+	case errors.Is(err, fs.ErrNotExist) && create:
+		if err := db.create(ctx, steps); err != nil {
+			return err
+		}
+	case errors.Is(err, fs.ErrNotExist):
+		return ErrNoStore
+	case err != nil:
+		return err
+	case head.empty && create:
+		if err := db.create(ctx, steps); err != nil {
+			return err
+		}
+	default:
+		if err := head.check(len(steps)); err != nil {
+			return err
+		}
+	}
+	if db.info, err = os.Stat(db.path); err != nil {
+		return err
+	}
+	if err := db.connect(ctx); err != nil {
+		return err
+	}
+	return db.upToDate(ctx, steps)
+}
+
+// header is what the first 100 bytes of a file say (SQLite, Database File
+// Format, 1.3).
+type header struct {
+	empty       bool
+	magic       bool
+	application uint32
+	version     uint32
+}
+
+// check refuses a file that is not ours, is newer or has a damaged header.
+func (h header) check(newest int) error {
+	switch {
+	case h.empty:
+		return fmt.Errorf("%w: the file is empty", ErrNotOurs)
+	case !h.magic && h.application == applicationID:
+		return fmt.Errorf("%w: the beginning of the file is overwritten", ErrCorrupt)
+	case !h.magic:
+		return fmt.Errorf("%w: it is no SQLite file", ErrNotOurs)
+	case h.application != applicationID:
+		return fmt.Errorf("%w: it is an SQLite file of another program", ErrNotOurs)
+	case h.version > uint32(newest):
+		return fmt.Errorf("%w: it has form %d, this program knows %d", ErrNewer, h.version, newest)
+	}
+	return nil
+}
+
+// opened holds the files that this process has open as stores: on some systems
+// closing any descriptor of a file drops the locks that the process holds on
+// it, so the header of such a file must not be read again.
+var opened struct {
+	sync.Mutex
+	by map[*DB]os.FileInfo
+}
+
+// look reads the header, and enters the file in opened.
+func (db *DB) look() (header, error) {
+	opened.Lock()
+	defer opened.Unlock()
+	info, err := os.Stat(db.path)
+	if err != nil {
+		return header{}, err
+	}
+	if info.IsDir() {
+		return header{}, fmt.Errorf("%w: it is a folder", ErrNotOurs)
+	}
+	if !info.Mode().IsRegular() {
+		return header{}, fmt.Errorf("%w: it is no ordinary file", ErrNotOurs)
+	}
+	known := false
+	for _, other := range opened.by {
+		known = known || os.SameFile(other, info)
+	}
+	h := header{magic: true, application: applicationID}
+	if !known {
+		if h, err = readHeader(db.path); err != nil {
+			return header{}, err
+		}
+	}
+	db.enter(info)
+	return h, nil
+}
+
+// enter notes that this process has the file open; opened must be locked.
+func (db *DB) enter(info os.FileInfo) {
+	if opened.by == nil {
+		opened.by = map[*DB]os.FileInfo{}
+	}
+	opened.by[db] = info
+}
+
+func readHeader(path string) (header, error) {
+	f, err := os.Open(path)
+	if err != nil {
+		return header{}, err
+	}
+	defer f.Close()
+	b := make([]byte, 100)
+	n, err := io.ReadFull(f, b)
+	if err != nil && !errors.Is(err, io.EOF) && !errors.Is(err, io.ErrUnexpectedEOF) {
+		return header{}, err
+	}
+	return header{
+		empty:       n == 0,
+		magic:       n == len(b) && string(b[:16]) == "SQLite format 3\x00",
+		version:     binary.BigEndian.Uint32(b[60:]),
+		application: binary.BigEndian.Uint32(b[68:]),
+	}, nil
+}
+
+// create makes the file and its folder. The store is made with a rollback
+// journal, so that a file of ours has our mark from its first page on, and so
+// that a half-made one is an empty one.
+func (db *DB) create(ctx context.Context, steps []migration) error {
+	if err := db.makeFolder(filepath.Dir(db.path)); err != nil {
+		return readOnlyIfDenied(err)
+	}
+	if err := db.makeFile(); err != nil {
+		return readOnlyIfDenied(err)
+	}
+	if _, err := db.look(); err != nil {
+		return err
+	}
+	maker, err := sql.Open("sqlite", dsn(db.path, db.options(url.Values{"_pragma": {
+		pageSizePragma, "synchronous(FULL)"}})))
+	if err != nil {
+		return err
+	}
+	maker.SetMaxOpenConns(1)
+	err = migrate(ctx, maker, steps)
+	return errors.Join(err, maker.Close())
+}
+
+// makeFile makes an empty file, unless one is there: an empty one, or that of a
+// process that makes the store just now.
+func (db *DB) makeFile() error {
+	opened.Lock()
+	defer opened.Unlock()
+	f, err := os.OpenFile(db.path, os.O_RDWR|os.O_CREATE|os.O_EXCL, 0o644)
+	if errors.Is(err, fs.ErrExist) {
+		return nil
+	}
+	if err != nil {
+		return err
+	}
+	db.created = true
+	return f.Close()
+}
+
+// makeFolder makes the folder with its parents and notes which ones it made.
+func (db *DB) makeFolder(folder string) error {
+	if _, err := os.Stat(folder); err == nil || !errors.Is(err, fs.ErrNotExist) {
+		return err
+	}
+	if parent := filepath.Dir(folder); parent != folder {
+		if err := db.makeFolder(parent); err != nil {
+			return err
+		}
+	}
+	if err := os.Mkdir(folder, 0o755); err != nil && !errors.Is(err, fs.ErrExist) {
+		return err
+	}
+	db.made = append(db.made, folder)
+	return nil
+}
+
+// readOnlyIfDenied says of a folder that may not be written what it means here.
+func readOnlyIfDenied(err error) error {
+	if errors.Is(err, fs.ErrPermission) {
+		return fmt.Errorf("%w: %w", ErrReadOnly, err)
+	}
+	return err
+}
+
+// options adds what every connection has to v.
+func (db *DB) options(v url.Values) url.Values {
+	wait := max(db.wait, 0).Milliseconds()
+	v["_pragma"] = append([]string{"busy_timeout(" + strconv.FormatInt(wait, 10) + ")"}, v["_pragma"]...)
+	v.Set("_dqs", "0")
+	v.Set("_defensive", "1")
+	v.Set("_error_rc", "1")
+	return v
+}
+
+// connect opens the connections of a store that is known to be ours.
+func (db *DB) connect(ctx context.Context) error {
+	if !db.readOnly {
+		err := db.connectWriter(ctx)
+		if err == nil {
+			return db.connectReaders(ctx, url.Values{"_pragma": {"query_only(1)"}})
+		}
+		if !cannotWrite(err) {
+			return err
+		}
+		db.readOnly = true
+	}
+	err := db.connectReaders(ctx, url.Values{"mode": {"ro"}})
+	if !cannotWrite(err) {
+		return err
+	}
+	// A folder that cannot be written has no room for the file that readers and
+	// writers share. Nobody writes there, so it is not needed, unless a crash
+	// left data in the log, which are found only by that file.
+	if db.hasLog() {
+		return fmt.Errorf("%w: data in its write-ahead log can be read only where the folder can be written: %w", ErrReadOnly, err)
+	}
+	return db.connectReaders(ctx, url.Values{"mode": {"ro"}, "immutable": {"1"}})
+}
+
+// cannotWrite reports whether err may come from a file or a folder that cannot
+// be written.
+func cannotWrite(err error) bool {
+	return errors.Is(err, ErrReadOnly) || isCode(err, sqlite3.SQLITE_READONLY) || isCode(err, sqlite3.SQLITE_CANTOPEN)
+}
+
+// hasLog reports whether a write-ahead log with content lies beside the file.
+func (db *DB) hasLog() bool {
+	info, err := os.Stat(db.path + "-wal")
+	return err == nil && info.Size() > 0
+}
+
+func (db *DB) connectWriter(ctx context.Context) error {
+	w, err := sql.Open("sqlite", dsn(db.path, db.options(url.Values{
+		"_txlock": {"immediate"},
+		"_pragma": {
+			pageSizePragma, // of a store whose making was cut short: it is empty
+			"journal_mode(WAL)", "synchronous(FULL)", "foreign_keys(1)", "recursive_triggers(1)", "cell_size_check(1)",
+			"cache_size(-32000)",           // kB: a large import stays in memory until it is committed
+			"journal_size_limit(33554432)", // bytes: what a large import leaves of the log
+		}})))
+	if err != nil {
+		return err
+	}
+	w.SetMaxOpenConns(1)
+	w.SetMaxIdleConns(1)
+	err = readable(ctx, w)
+	if err == nil {
+		var ok bool
+		if ok, err = canWrite(ctx, w); err == nil && !ok {
+			err = ErrReadOnly
+		}
+	}
+	if err != nil {
+		return errors.Join(err, w.Close())
+	}
+	db.writes = w
+	return nil
+}
+
+func (db *DB) connectReaders(ctx context.Context, v url.Values) error {
+	v["_pragma"] = append(v["_pragma"], "cell_size_check(1)", "cache_size(-16000)")
+	r, err := sql.Open("sqlite", dsn(db.path, db.options(v)))
+	if err != nil {
+		return err
+	}
+	r.SetMaxOpenConns(4)
+	r.SetMaxIdleConns(4)
+	if err := readable(ctx, r); err != nil {
+		return errors.Join(err, r.Close())
+	}
+	db.reads = r
+	return nil
+}
+
+// readable opens a connection and has the schema read.
+func readable(ctx context.Context, pool *sql.DB) error {
+	var n int
+	return pool.QueryRowContext(ctx, `SELECT count(*) FROM sqlite_schema`).Scan(&n)
+}
+
+// canWrite reports whether SQLite got the file for writing; it falls back to
+// reading in silence.
+func canWrite(ctx context.Context, pool *sql.DB) (bool, error) {
+	conn, err := pool.Conn(ctx)
+	if err != nil {
+		return false, err
+	}
+	defer conn.Close()
+	var readOnly bool
+	err = conn.Raw(func(c any) error {
+		readOnly, err = c.(interface{ IsReadOnly(string) (bool, error) }).IsReadOnly("main")
+		return err
+	})
+	return !readOnly, err
+}
+
+// Close closes the store. Transactions must have ended.
+func (db *DB) Close() error {
+	var errs []error
+	if db.reads != nil {
+		errs = append(errs, db.reads.Close())
+	}
+	if db.writes != nil { // last, so that it empties the write-ahead log into the file
+		errs = append(errs, db.writes.Close())
+	}
+	opened.Lock()
+	delete(opened.by, db)
+	opened.Unlock()
+	return wrap(db.path, errors.Join(errs...))
+}
+
+// Path is the absolute path of the file.
+func (db *DB) Path() string { return db.path }
+
+// ReadOnly reports whether the store was opened for reading only, by choice or
+// because it cannot be written.
+func (db *DB) ReadOnly() bool { return db.readOnly }
+
+// CreatedNow reports whether Open made the file.
+func (db *DB) CreatedNow() bool { return db.created }
