@@ -163,7 +163,7 @@ func (c *buffer) put(cell []byte, n numeral, s *scale) (state record.PointState,
 	}
 	d, rest, ok := n.decimal(strip(string(text)))
 	if !ok {
-		return "", n.complain(text)
+		return "", n.complain(text, "")
 	}
 	if rest == "" {
 		if st := d.meterState(); st != "" {
@@ -174,7 +174,7 @@ func (c *buffer) put(cell []byte, n numeral, s *scale) (state record.PointState,
 	exp := s.exp
 	if rest != "" {
 		if exp, why = d.suffix(rest, s); why != "" {
-			return "", strconv.QuoteToGraphic(string(text)) + ": " + why
+			return "", n.complain(text, why)
 		}
 	}
 	at := len(c.text)
@@ -198,7 +198,7 @@ func (c *buffer) null() {
 func (c *buffer) drop() {
 	n := len(c.values) - 1
 	c.values = c.values[:n]
-	c.text = c.text[:bytes.LastIndexByte(c.text[:len(c.text)-1], ',')+1]
+	c.text = c.text[:bytes.LastIndexAny(c.text[:len(c.text)-1], ",[")+1]
 }
 
 // decimal is a decimal number in its parts, as it was written.
@@ -327,16 +327,16 @@ func (d *decimal) json(dst []byte, exp int) []byte {
 }
 
 // complain says why a text is no number.
-func (n numeral) complain(text []byte) string {
+func (n numeral) complain(text []byte, why string) string {
 	q := strconv.QuoteToGraphic(string(text))
-	other := byte(',')
-	if n.mark == ',' {
-		other = '.'
-	}
-	if bytes.IndexByte(text, other) >= 0 {
-		if _, _, ok := (numeral{mark: other}).decimal(strip(string(text))); ok {
+	mark := other(n.mark)
+	if bytes.IndexByte(text, mark) >= 0 {
+		if _, rest, ok := (numeral{mark: mark}).decimal(strip(string(text))); ok && (rest == "" || rest[0] != n.mark) {
 			return q + " has another decimal mark than the file (" + markName(n.mark) + ")"
 		}
+	}
+	if why != "" {
+		return q + ": " + why
 	}
 	return q + " is no number"
 }

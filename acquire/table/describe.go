@@ -3,6 +3,7 @@ package table
 import (
 	"bytes"
 	"fmt"
+	"slices"
 	"strings"
 
 	"gatesill/store/record"
@@ -91,10 +92,10 @@ func lively(s *Sweep) bool {
 		case record.VG, record.Temp, record.T, record.VDD:
 			continue
 		}
-		different := map[float64]bool{}
+		different := make([]float64, 0, 4)
 		for _, x := range c.Values {
-			if x == x {
-				different[x] = true
+			if x == x && !slices.Contains(different, x) {
+				different = append(different, x)
 			}
 			if len(different) >= 4 {
 				return true
@@ -118,7 +119,9 @@ func (r *reader) checkOneColumn() error {
 		if len(s.cells) != 2 || e.weakComma != 1 {
 			return nil
 		}
-		example = string(trim(s.row))
+		if example == "" {
+			example = string(trim(s.row))
+		}
 	}
 	switch r.opt.Decimal {
 	case "":

@@ -45,9 +45,9 @@ func passes(vg []float64, sign float64) []pass {
 	jitter := 0.0
 	if n >= 12 {
 		jitter = jitterOf(v)
-		if span < 8*jitter { // the gate was held
-			return []pass{{0, n, direction(v, sign)}}
-		}
+	}
+	if span < 10*jitter || span < 0.01*greatest(v) { // the gate was held
+		return []pass{{0, n, direction(v, sign)}}
 	}
 	for _, share := range []float64{0.1, 0.2, 0.35, 0.5} {
 		cuts := turns(v, max(share*span, 4*jitter))
@@ -181,23 +181,20 @@ func turns(v []float64, h float64) []int {
 // belongs to the pass that follows, at the end to the one before.
 func cutAt(v []float64, cuts []int, sign float64) []pass {
 	var list []pass
-	lo := 0
+	lo, from := 0, 0 // from: the point that the pass sets out from
 	for i, c := range cuts {
-		if i > 0 && c+1-lo <= 1 {
+		if i > 0 && c == lo {
+			from = c
 			continue
 		}
-		list = append(list, pass{lo: lo, hi: c + 1})
-		lo = c + 1
+		list = append(list, pass{lo, c + 1, direction(v[from:c+1], sign)})
+		lo, from = c+1, c
 	}
 	if len(v)-lo <= 1 && len(list) > 0 {
 		list[len(list)-1].hi = len(v)
-	} else {
-		list = append(list, pass{lo: lo, hi: len(v)})
+		return list
 	}
-	for i := range list {
-		list[i].dir = direction(v[list[i].lo:list[i].hi], sign)
-	}
-	return list
+	return append(list, pass{lo, len(v), direction(v[from:], sign)})
 }
 
 // believable reports whether the gate covered a good part of its span between

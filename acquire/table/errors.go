@@ -3,6 +3,8 @@ package table
 import (
 	"fmt"
 	"strconv"
+	"strings"
+	"unicode/utf8"
 )
 
 // Error gives the place and what is wrong there; the hint is not part of it.
@@ -49,12 +51,32 @@ func (r *reader) ask(q Question, line int, hint string) (string, error) {
 	return "", r.ambiguous(line, hint, "%s (answer %q is none of the choices)", q.Text, answer)
 }
 
-// cut shortens a text for a message: at most n bytes, escaped so that nothing
-// in it reaches the terminal as a control sequence.
+// cut shortens a text to n bytes and escapes what would reach a terminal as
+// more than a character: control characters, invisible ones, broken UTF-8.
 func cut(s string, n int) string {
 	if len(s) > n {
-		s = s[:n] + "..."
+		s = strings.ToValidUTF8(s[:n], "") + "..."
 	}
-	q := strconv.QuoteToGraphic(s)
-	return q[1 : len(q)-1]
+	for i := 0; i < len(s); i++ {
+		if s[i] < ' ' || s[i] >= 0x7f {
+			return escape(s)
+		}
+	}
+	return s
+}
+
+func escape(s string) string {
+	var b strings.Builder
+	for i, c := range s {
+		switch {
+		case c == utf8.RuneError && !strings.HasPrefix(s[i:], "\ufffd"):
+			fmt.Fprintf(&b, `\x%02x`, s[i])
+		case strconv.IsGraphic(c):
+			b.WriteRune(c)
+		default:
+			q := strconv.QuoteRune(c)
+			b.WriteString(q[1 : len(q)-1])
+		}
+	}
+	return b.String()
 }

@@ -139,13 +139,22 @@ func firstData(rows []sampled, usual []kind) int {
 // when none names any.
 func bestHeader(rows []sampled, width int) int {
 	best, score := -1, 0
+	units := -1 // a line of units is a header only when there is no other
 	for i, s := range rows {
 		if len(s.cells) < 2 && width > 1 || len(s.cells) == 0 {
 			continue
 		}
-		if n := headerScore(s, rows[i+1:]); n > score {
+		switch n := headerScore(s, rows[i+1:]); {
+		case n > 0 && isUnitLine(s.cells):
+			if units < 0 {
+				units = i
+			}
+		case n > score:
 			best, score = i, n
 		}
+	}
+	if best < 0 {
+		return units
 	}
 	return best
 }

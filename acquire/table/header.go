@@ -31,6 +31,13 @@ func readHeading(text string) heading {
 	}
 	t := strings.Join(strings.Fields(norm.NFKC.String(h.text)), " ")
 	h.name = t
+	if strings.ContainsAny(t, "([{</") { // T [°C] is no T_C
+		if name, u, ok := splitUnit(t); ok && h.named(name) {
+			h.name, h.unit, h.hasUnit = name, u, true
+			h.settleUnit()
+			return h
+		}
+	}
 	if h.named(t) {
 		if u, ok := readUnit(t); ok && u.dim == dimOf(h.role) { // just "V"
 			h.unit, h.hasUnit = u, true

@@ -118,7 +118,7 @@ func (r *reader) isCounter(c *column) bool {
 			break
 		}
 	}
-	return len(vg) >= 6 && len(passes(vg, 1)) <= 3
+	return len(vg) >= 6*len(passes(vg, 1))
 }
 
 // columnValues reads a column of the sample, leaving out what is no number.

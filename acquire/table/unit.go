@@ -21,7 +21,7 @@ var symbols = map[string]string{
 	"siemens": "S", "a/v": "S", "mho": "S",
 	"ohm": "ohm", "ohms": "ohm", "ω": "ohm", "ohmios": "ohm",
 	"w": "W", "watt": "W", "watts": "W",
-	"°c": "degC", "ºc": "degC", "c": "degC", "degc": "degC", "celsius": "degC", "gradc": "degC", "grad": "degC", "deg": "degC", "°": "degC",
+	"°c": "degC", "oc": "degC", "c": "degC", "degc": "degC", "celsius": "degC", "gradc": "degC", "grad": "degC", "deg": "degC", "°": "degC",
 	"sec": "s", "secs": "s", "second": "s", "seconds": "s", "sekunden": "s", "sek": "s", "secondes": "s", "segundos": "s", "secondi": "s",
 	"k": "K", "kelvin": "K", "°k": "K", "°f": "degF", "f": "degF", "degf": "degF",
 	"min": "min", "minutes": "min", "h": "min", "hours": "min",
@@ -57,7 +57,7 @@ func readUnit(text string) (unit, bool) {
 			continue
 		}
 		switch dim, ok := symbol(rest); {
-		case !ok:
+		case !ok, dim == "S" && p.exp > 0: // GS stands in V_GS
 		case dim == "V" || dim == "A" || dim == "S" || dim == "ohm" || dim == "W" || dim == "s":
 			return unit{text: shown(p.text, dim), dim: dim, exp: p.exp}, true
 		}

@@ -166,11 +166,7 @@ func (r *reader) doubtUnits() {
 	for i := range r.file.Sweeps {
 		for _, c := range r.file.Sweeps[i].Columns {
 			short := shortOf(c.Quantity)
-			for _, x := range c.Values {
-				if a := math.Abs(x); a > most[short] {
-					most[short] = a
-				}
-			}
+			most[short] = max(most[short], greatest(c.Values))
 		}
 	}
 	for _, l := range []struct {
@@ -195,4 +191,15 @@ func (r *reader) doubtUnits() {
 			r.remark(CodeUnitDoubtful, "%s never gets beyond %.3g %s: is its unit right?", where, x, dimOf(l.short))
 		}
 	}
+}
+
+// greatest is the greatest magnitude among the numbers.
+func greatest(v []float64) float64 {
+	m := 0.0
+	for _, x := range v {
+		if a := math.Abs(x); a > m {
+			m = a
+		}
+	}
+	return m
 }

@@ -45,14 +45,14 @@ var words = func() map[string]word {
 			}
 		}
 	}
-	add("vg", sure, `vg vgs ug ugs vgate ugate gate gatev gatevoltage gatesourcevoltage gatetosourcevoltage vgatesource ugatesource
+	add("vg", sure, `vg vgs ug ugs vgate ugate gate gatevoltage gatesourcevoltage gatetosourcevoltage vgatesource ugatesource
 		vgatetosource gatebias biasvoltage gatebiasvoltage gatedrive vgbias vbias ubias gatespannung gatesourcespannung spannunggate gatevorspannung ansteuerspannung steuerspannung
 		tensiongrille tensiondegrille tensiongrillesource grille vgrille ugrille tensionpuerta tensiondepuerta tensionpuertafuente voltajepuerta voltajedepuerta vpuerta
 		puerta compuerta vcompuerta tensiongate tensionedigate tensionegate tensionedigatesource tensionporta tensaoporta tensaodeporta tensaogate poortspanning gatespanning
 		napieciebramki ubramki bramka gatespenning gatespanning styrespenning styrspanning hilajannite napetihradla vgsq vgsidle vgq uзи uз`)
 	add("vg", weak, `vgset vgsset vgateset gateset vgsoll ugsoll ugssoll setgate vset uset usoll vsoll vgnominal vgstep`)
 	add("id", sure, `id ids idrain idd idq drainstrom draincurrent drainamps currentdrain idrainsource drainsourcecurrent idraintosource idmeas
-		stromdrain draini drainid courantdrain courantdedrain corrientedrenador corrientededrenador corrientedrenaje corrientededrenaje corrientedrain correntedrain
+		stromdrain courantdrain courantdedrain corrientedrenador corrientededrenador corrientedrenaje corrientededrenaje corrientedrain correntedrain
 		correntedidrain correntedreno correntededreno drainstroom praddrenu idrenu drainstrom drainstrøm nieluvirta proudkolektoru proudemitoru iс
 		quiescentcurrent idlecurrent ruhestrom courantrepos`)
 	add("vl", sure, `vrl url vacrossrl uacrossrl voltageacrossrl voltageacrossload acrossrl vlacross spannunganrl spannungueberrl spannunguberrl vonrl
@@ -61,14 +61,14 @@ var words = func() map[string]word {
 		ausgang ausgangsspannung vcharge ucharge tensioncharge tensiondecharge tensionsortie tensiondesortie vsortie usortie vcarga ucarga tensioncarga tensiondecarga voltajecarga
 		voltajedecarga carga vsalida vcarico ucarico tensionecarico tensionedicarico tensionedelcarico carico vuscita uscita belasting belastingsspanning lastspanning
 		obciazenie uobciazenia uobc uн`)
-	add("vd", sure, `vd vds ud uds vdrain udrain drainv drainvoltage drainsourcevoltage draintosourcevoltage vdrainsource udrainsource drainspannung
+	add("vd", sure, `vd vds ud uds vdrain udrain drainvoltage drainsourcevoltage draintosourcevoltage vdrainsource udrainsource drainspannung
 		drainsourcespannung tensiondrain tensiondedrain tensiondrainsource tensiondrenador tensiondedrenador tensiondrenadorfuente voltajedrenador vdrenador tensionedrain tensionedidrain tensionedidrainsource
 		tensaodreno drainspanning napieciedrenu udrenu uси uс`)
 	add("vdd", sure, `vdd udd vcc ucc ub ubat ubatt vbat vbatt battery vsupply usupply supply supplyvoltage voltagesupply vpsu psu vplus versorgung
 		versorgungsspannung betriebsspannung ubetrieb speisespannung uspeisung uversorgung batterie valim ualim alimentation tensionalimentation tensiondalimentation valimentation
 		alimentacion valimentacion tensionalimentacion tensiondealimentacion alimentazione valimentazione tensionealimentazione tensionedialimentazione voedingsspanning
 		voeding uzas zasilanie napieciezasilania upit`)
-	add("ig", sure, `ig igs igss igate gatecurrent gatei gateleakage gatestrom courantgrille courantdegrille corrientepuerta corrientedepuerta correntegate correntedigate pradbramki`)
+	add("ig", sure, `ig igs igss igate gatecurrent gateleakage gatestrom courantgrille courantdegrille corrientepuerta corrientedepuerta correntegate correntedigate pradbramki`)
 	add("gm", sure, `gm gfs yfs transconductance mutualconductance steilheit vorwartssteilheit transconductancia transconduttanza transkonduktanz pente transconductantie transkonduktancja slope`)
 	add("temp", sure, `temp temperature temperatur temperatura temperaturen tcase tc tamb ta tambient ths theatsink tsink tj tjunction tmount 
 		tgehause tgehaeuse tumg tumgebung gehausetemperatur umgebungstemperatur kuhlkorper kuehlkoerper tkk ttab temperatuur teplota lampotila temperaturaambiente`)
