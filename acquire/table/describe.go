@@ -49,9 +49,47 @@ func (r *reader) describe() {
 	if left > 0 {
 		r.note("%d more columns like the last one listed", left)
 	}
-	if n := len(r.text); n > 0 && !bytes.ContainsAny(r.text[n-1:], "\r\n") {
-		r.note("the last line has no line end: the file may be cut off")
+	r.checkEnd()
+}
+
+// checkEnd looks at a last line that has no line end: where its last number has
+// fewer decimals than the rows above, the file was cut off within it.
+func (r *reader) checkEnd() {
+	n := len(r.text)
+	if n == 0 || bytes.ContainsAny(r.text[n-1:], "\r\n") {
+		return
 	}
+	r.note("the last line has no line end")
+	lines := bytes.FieldsFunc(r.text[max(0, n-4096):], func(c rune) bool { return c == '\n' || c == '\r' })
+	if len(lines) < 4 {
+		return
+	}
+	last := r.decimals(lines[len(lines)-1])
+	for _, l := range lines[len(lines)-3 : len(lines)-1] {
+		if d := r.decimals(l); d < 0 || d <= last || last < 0 {
+			return
+		}
+	}
+	r.remark(CodeCutOff, "the last line has no line end, and its last number has fewer decimals than those above: the file may be cut off")
+}
+
+// decimals counts the digits behind the decimal mark at the end of a row, -1
+// when it does not end in a number.
+func (r *reader) decimals(row []byte) int {
+	digits := 0
+	for i := len(row) - 1; i >= 0; i-- {
+		switch c := row[i]; {
+		case c-'0' <= 9:
+			digits++
+		case c == r.num.mark:
+			return digits
+		case digits > 0 && (c == r.delim || c == '"' || c == '-'):
+			return 0
+		default:
+			return -1
+		}
+	}
+	return -1
 }
 
 // sameRows remarks on sweeps of two devices that hold the very same readings.
@@ -141,6 +179,5 @@ func (r *reader) checkOneColumn() error {
 	}
 	r.delim = 0
 	r.headings, r.headerLine, r.unitLine, r.unitCells, r.talk = nil, 0, 0, nil, nil
-	r.findHeader()
-	return nil
+	return r.findHeader()
 }

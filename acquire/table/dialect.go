@@ -2,6 +2,7 @@ package table
 
 import (
 	"bytes"
+	"slices"
 	"strings"
 )
 
@@ -109,7 +110,7 @@ func (r *reader) sample(delim byte, marks *comments) []sampled {
 		if s.unclosed {
 			continue
 		}
-		rows = append(rows, sampled{line: s.at, start: s.start, row: s.row, cells: append([][]byte(nil), s.cells...)})
+		rows = append(rows, sampled{line: s.at, start: s.start, row: s.row, cells: slices.Clone(s.cells[:min(len(s.cells), maxColumns+1)])})
 		data++
 	}
 	return rows

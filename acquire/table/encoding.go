@@ -52,7 +52,8 @@ func (r *reader) checkHead(head []byte) error {
 		return nil
 	}
 	var nul, control int
-	for _, c := range head {
+	written := bytes.TrimRight(head, "\x00") // a block that was never written may end a file
+	for _, c := range written {
 		switch {
 		case c == 0:
 			nul++
@@ -60,7 +61,7 @@ func (r *reader) checkHead(head []byte) error {
 			control++
 		}
 	}
-	if nul > len(head)/100 || control > len(head)/20 {
+	if len(written) == 0 || nul > max(16, len(written)/100) || control > max(16, len(written)/20) {
 		return r.refused(0, "it is a binary file, no text")
 	}
 	return nil

@@ -6,10 +6,19 @@ import (
 	"strings"
 )
 
+// scoredCells is how many cells of a row are looked at to tell whether it is
+// the header.
+const scoredCells = 500
+
 // findHeader finds header, unit line and first row of data in the head of the
 // file, and keeps what stands above them as talk.
-func (r *reader) findHeader() {
+func (r *reader) findHeader() error {
 	rows := r.sample(r.delim, r.marks)
+	for _, s := range rows {
+		if len(s.cells) > maxColumns {
+			return r.refused(s.line, "it has more columns than may be: at most %d", maxColumns)
+		}
+	}
 	var plain []sampled // without comments and the delimiter declaration
 	for _, s := range rows {
 		if !s.comment && !(s.line == 1 && bytes.HasPrefix(s.row, []byte("sep="))) {
@@ -46,7 +55,7 @@ func (r *reader) findHeader() {
 	}
 	r.body = plain[min(first, len(plain)):]
 	if len(r.body) == 0 {
-		return
+		return r.refused(0, "it holds no rows of readings")
 	}
 	r.bodyLine = r.body[0].line
 	for _, s := range rows {
@@ -55,6 +64,7 @@ func (r *reader) findHeader() {
 		}
 	}
 	slices.SortStableFunc(r.talk, func(a, b remarkLine) int { return a.line - b.line })
+	return nil
 }
 
 func (r *reader) setHeader(s sampled) {
@@ -161,7 +171,7 @@ func bestHeader(rows []sampled, width int) int {
 
 func headerScore(s sampled, below []sampled) int {
 	score := 0
-	for j, c := range s.cells {
+	for j, c := range s.cells[:min(len(s.cells), scoredCells)] {
 		if len(c) > 400 || kindOf(c) == number {
 			continue
 		}

@@ -181,3 +181,16 @@ func hasRemark(f *File, code, words string) bool {
 }
 
 func ten() record.Num { return record.Known(0.01) }
+
+// checkOneCell checks that text and value of a column of one cell agree.
+func checkOneCell(t *testing.T, cell []byte, b buffer, state string) {
+	t.Helper()
+	var text []*float64
+	if err := json.Unmarshal(b.text, &text); err != nil || len(text) != 1 || len(b.values) != 1 {
+		t.Fatalf("%q: %s %v %v", cell, b.text, b.values, err)
+	}
+	x := b.values[0]
+	if (text[0] == nil) != math.IsNaN(x) || (state != "") != math.IsNaN(x) || text[0] != nil && *text[0] != x {
+		t.Fatalf("%q: %s, value %g, state %q", cell, b.text, x, state)
+	}
+}

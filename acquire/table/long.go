@@ -105,8 +105,8 @@ func (r *reader) readLong() ([]*builder, error) {
 		}
 	}
 	for l.w.nextRow() {
-		if len(l.w.cells) < l.width {
-			l.w.refuseUnlessHeader(l.w.tooShort(l.width))
+		if why := l.w.misfit(l.width); why != "" {
+			l.w.refuseUnlessHeader(why)
 			continue
 		}
 		b := l.builder()

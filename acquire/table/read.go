@@ -22,11 +22,11 @@ const (
 
 // Codes of the remarks of this package.
 const (
-	CodeSameRows      = "same-rows"       // one block of rows under two devices
-	CodeFlagWins      = "flag-wins"       // a flag contradicts the file
-	CodeUnitDoubtful  = "unit-doubtful"   // no bench gives such numbers in that unit
-	CodeTalkDiffers   = "talk-differs"    // two comments contradict one another
-	CodeColumnNotUsed = "column-not-used" // a column of numbers is left out
+	CodeSameRows     = "same-rows"     // one block of rows under two devices
+	CodeFlagWins     = "flag-wins"     // a flag contradicts the file
+	CodeUnitDoubtful = "unit-doubtful" // no bench gives such numbers in that unit
+	CodeTalkDiffers  = "talk-differs"  // two comments contradict one another
+	CodeCutOff       = "cut-off"       // the file seems to end too early
 )
 
 // reader is one file while it is read. Its steps run once, in the order of
@@ -182,7 +182,7 @@ func (r *reader) read(raw []byte) (*File, error) {
 	if r.text, r.file.Dialect.Encoding, err = r.decode(raw); err != nil {
 		return nil, err
 	}
-	r.text = bytes.TrimRight(r.text, "\x1a\x00") // end marks of old systems, blocks never written
+	r.trimEnd()
 	for _, step := range []func() error{
 		r.checkUnitOptions, r.findDelimiter, r.findTable, r.mapColumns, r.settle, r.readRows, r.finish,
 	} {
@@ -196,11 +196,20 @@ func (r *reader) read(raw []byte) (*File, error) {
 	return r.file, nil
 }
 
+// trimEnd takes off what is no text at the end: the end mark of old systems,
+// and zeros where the last block was never written.
+func (r *reader) trimEnd() {
+	n := len(r.text)
+	r.text = bytes.TrimRight(r.text, "\x1a\x00")
+	if zeros := n - len(r.text); zeros > 1 {
+		r.remark(CodeCutOff, "%d zeros at the end are left out: the file was not written to its end", zeros)
+	}
+}
+
 // findTable finds header, body, talk and columns.
 func (r *reader) findTable() error {
-	r.findHeader()
-	if len(r.body) == 0 {
-		return r.refused(0, "it holds no rows of readings")
+	if err := r.findHeader(); err != nil {
+		return err
 	}
 	if err := r.checkOneColumn(); err != nil {
 		return err

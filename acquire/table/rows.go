@@ -118,7 +118,21 @@ func (w *rows) isHeaderAgain() bool {
 	return same
 }
 
-// tooShort says that a row ends before its last column.
-func (w *rows) tooShort(want int) string {
-	return fmt.Sprintf("the row has %d cells, want %d", len(w.cells), want)
+// misfit says how the row has too few cells to hold all that is read, or more
+// than the header names; "" when it fits.
+func (w *rows) misfit(want int) string {
+	n := len(w.cells)
+	switch {
+	case n < want:
+		return fmt.Sprintf("the row has %d cells, want %d", n, want)
+	case n <= len(w.r.cols):
+		return ""
+	}
+	for n > len(w.r.cols) && len(trim(w.cells[n-1])) == 0 {
+		n--
+	}
+	if n > len(w.r.cols) {
+		return fmt.Sprintf("the row has %d cells, want %d", n, len(w.r.cols))
+	}
+	return ""
 }

@@ -58,8 +58,9 @@ func (s *splitter) trimCR(row []byte) []byte {
 	return row
 }
 
-// split cuts the row into cells, quotes taken off. A quoted cell that runs over
-// line ends takes the lines that follow into the row.
+// split cuts the row into cells, quotes taken off; it stops at one more than
+// any file may have. A quoted cell that runs over line ends takes the lines that
+// follow into the row.
 func (s *splitter) split() {
 	s.unclosed = false
 	if bytes.IndexByte(s.row, '"') >= 0 {
@@ -73,7 +74,7 @@ func (s *splitter) split() {
 	case ' ':
 		for i, c := range row {
 			if c == ' ' || c == '\t' {
-				if i > lo {
+				if i > lo && len(cells) <= maxColumns {
 					cells = append(cells, row[lo:i])
 				}
 				lo = i + 1
@@ -87,6 +88,9 @@ func (s *splitter) split() {
 			if c == delim {
 				cells = append(cells, row[lo:i])
 				lo = i + 1
+				if len(cells) > maxColumns {
+					break
+				}
 			}
 		}
 		cells = append(cells, row[lo:])
@@ -127,7 +131,7 @@ func (s *splitter) splitQuoted() {
 			s.cells = append(s.cells, s.trimCR(s.text[p:q]))
 		}
 		p = q
-		if p >= end {
+		if p >= end || len(s.cells) > maxColumns {
 			break
 		}
 		p++ // the delimiter

@@ -84,8 +84,8 @@ func (r *reader) readSpot() ([]*builder, error) {
 	}
 	var list []*builder
 	for s.w.nextRow() {
-		if len(s.w.cells) < s.width {
-			s.w.refuseUnlessHeader(s.w.tooShort(s.width))
+		if why := s.w.misfit(s.width); why != "" {
+			s.w.refuseUnlessHeader(why)
 			continue
 		}
 		if len(list) == maxSweeps {

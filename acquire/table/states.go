@@ -24,7 +24,7 @@ var underloadWords = map[string]bool{
 // missingWords are what stands where there was no reading.
 var missingWords = map[string]bool{
 	"": true, "NA": true, "N/A": true, "NAN": true, "NULL": true, "NIL": true, "NONE": true, "NOREADING": true, "NODATA": true, "MISSING": true,
-	"BLANK": true, "EMPTY": true, "?": true, "??": true, "???": true, "*": true, "X": true, "\u2013": true, "\u2014": true, "\u2026": true,
+	"BLANK": true, "EMPTY": true, "?": true, "??": true, "???": true, "*": true, "\u2013": true, "\u2014": true, "\u2026": true,
 	"#N/A": true, "#DIV/0!": true, "#NV": true, "#VALUE!": true, "#WERT!": true, "#REF!": true, "#NUM!": true, "KA": true, "ERR": true, "ERROR": true,
 }
 

@@ -297,6 +297,9 @@ func talkNumber(text, dim string, key unit, mark byte) (float64, bool) {
 		exp = u.exp
 	default: // 4k7, 10R
 		first := strings.Fields(text)[0]
+		if first == m[1] { // a number, a blank, and no unit of this
+			return 0, false
+		}
 		x, err := record.ParseNumber(strings.Replace(first, ",", ".", 1), dim)
 		return x, err == nil && dim != "W"
 	}

@@ -196,8 +196,8 @@ func (r *reader) readWide() ([]*builder, error) {
 		}
 	}
 	for w.nextRow() {
-		if len(w.cells) < width {
-			w.refuseUnlessHeader(w.tooShort(width))
+		if why := w.misfit(width); why != "" {
+			w.refuseUnlessHeader(why)
 			continue
 		}
 		if why := r.wideRow(w, all, cols, marks); why != "" {
