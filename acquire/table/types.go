@@ -39,8 +39,7 @@ type Question struct {
 // Role is what a column may hold besides the record quantities.
 type Role string
 
-// The roles of columns that hold no measured quantity. LoadOrDrain is a 'load'
-// column whose meaning is decided by what it does when the current rises.
+// The roles of columns that hold no measured quantity.
 const (
 	RoleDevice   Role = "device"
 	RoleLot      Role = "lot"
@@ -53,6 +52,8 @@ const (
 	RoleMarking  Role = "marking"
 	RoleTube     Role = "tube"
 	RoleNote     Role = "note"
+	RoleSweep    Role = "sweep" // number or direction of the sweep; where it changes another sweep begins
+	RoleRL       Role = "rl"    // load resistor, ohm; kept with the condition
 	RoleIgnore   Role = "ignore"
 )
 

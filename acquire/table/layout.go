@@ -1,0 +1,215 @@
+package table
+
+import (
+	"fmt"
+	"slices"
+	"strings"
+
+	"gatesill/store/record"
+)
+
+// The layouts, as [File] names them.
+const (
+	layoutLong      = "long"
+	layoutWide      = "wide"
+	layoutPerDevice = "per-device"
+	layoutSpot      = "spot"
+)
+
+// findLayout decides how rows become sweeps, and drops the columns that the
+// layout has no use for.
+func (r *reader) findLayout() error {
+	device, gates := r.first(string(RoleDevice)), r.mapped("vg")
+	vth := r.mapped(roleVth)
+	current := r.first("id") != nil || r.first("vl") != nil || r.first("vd") != nil || r.first(roleLoad) != nil
+	spots := slices.ContainsFunc(gates, func(c *column) bool { return c.spot.IsKnown() })
+	plain := slices.ContainsFunc(gates, func(c *column) bool { return !c.spot.IsKnown() })
+	free := r.freeColumns()
+	if !plain && !spots && len(vth) > 0 {
+		for _, c := range vth[:1] {
+			c.as = "vg"
+		}
+		gates, vth, plain = vth[:1], vth[1:], true
+		current = false // whatever else stands there, thresholds are no sweep
+	}
+	r.drop(vth, "a threshold beside sweeps")
+	switch {
+	case len(gates) == 0:
+		return r.noGate()
+	case plain && current:
+		r.dropSpots(gates)
+		if device != nil && r.isCounter(device) {
+			r.note("column %s counts the rows: it is not the device", device.title())
+			device.as = string(RoleIgnore)
+			device = nil
+		}
+		if device == nil {
+			r.layout = layoutPerDevice
+			return r.fileDevice()
+		}
+		r.layout = layoutLong
+	case spots, device != nil && r.spotCurrent().IsKnown():
+		return r.spotLayout(device)
+	case device == nil && len(free) > 0:
+		r.layout = layoutWide
+		return r.wideColumns(free)
+	case device != nil && len(free) == 1 && (free[0].unit.dim == "A" || r.isGiven("id")):
+		free[0].as, free[0].how = "id", "unit"
+		r.layout = layoutLong
+	default:
+		hint := "--spot-current 10mA, or --map id=COLUMN"
+		return r.ambiguous(r.headerLine, hint, "there is a gate voltage, but no current: at which current was it read?")
+	}
+	return nil
+}
+
+func (r *reader) isGiven(short string) bool {
+	_, ok := r.unitOption(short)
+	return ok
+}
+
+// freeColumns are columns of numbers that no word or flag claims.
+func (r *reader) freeColumns() []*column {
+	var free []*column
+	for j := range r.cols {
+		c := &r.cols[j]
+		if c.as != "" || c.role != "" || c.text == "" && r.headerLine > 0 {
+			continue
+		}
+		if c.texts <= c.numbers && (c.texts == 0 || c.numbers > 0) {
+			free = append(free, c)
+		}
+	}
+	return free
+}
+
+func (r *reader) noGate() error {
+	return r.ambiguous(r.headerLine, "--map vg=COLUMN,id=COLUMN", "no column is recognised as the gate voltage; the columns are %s", r.listColumns())
+}
+
+// drop leaves columns out and says so.
+func (r *reader) drop(cols []*column, why string) {
+	for _, c := range cols {
+		c.as = string(RoleIgnore)
+		r.note("column %s is not used: %s", c.title(), why)
+	}
+}
+
+func (r *reader) dropSpots(gates []*column) {
+	for _, c := range gates {
+		if c.spot.IsKnown() {
+			r.drop([]*column{c}, "a spot beside sweeps")
+		}
+	}
+}
+
+// isCounter reports whether a column headed 'no.' numbers the readings of one
+// sweep and not the devices: it counts up by one while the gate goes one way.
+func (r *reader) isCounter(c *column) bool {
+	gate := r.first("vg")
+	if c.rank != weaker || c.how != "header" || !c.counting || len(r.body) < 6 || gate == nil {
+		return false
+	}
+	rows := r.body
+	var vg []float64
+	for _, n := range []numeral{{mark: '.'}, {mark: ','}} {
+		vg = columnValues(rows, gate.index, n)
+		if len(vg) > len(rows)/2 {
+			break
+		}
+	}
+	return len(vg) >= 6*len(passes(vg, 1))
+}
+
+// columnValues reads a column of the sample, leaving out what is no number.
+func columnValues(rows []sampled, j int, n numeral) []float64 {
+	var b buffer
+	s := newScale("V", 0, true)
+	for _, row := range rows {
+		if j < len(row.cells) && kindOf(row.cells[j]) == number {
+			b.put(row.cells[j], n, &s)
+		}
+	}
+	return b.values
+}
+
+// fileDevice names the one device of the file: by a comment, else by the stem
+// of its name.
+func (r *reader) fileDevice() error {
+	if r.talkDevice != "" {
+		return nil
+	}
+	stem := r.file.Name
+	if i := strings.LastIndexByte(stem, '.'); i > 0 {
+		stem = stem[:i]
+	}
+	if stem == "" || stem == "-" {
+		return r.ambiguous(0, "--map device=COLUMN, or a first line '# device: D07'", "the file has no device column and no name to take for the device")
+	}
+	if err := record.CheckName("device", stem); err != nil {
+		return r.refused(0, "its name gives the device name: %v", err)
+	}
+	r.talkDevice = stem
+	r.note("the device is named by the file: %s", cut(stem, 60))
+	return nil
+}
+
+// spotCurrent is the current of gate voltages that have none in their header.
+func (r *reader) spotCurrent() record.Num {
+	return r.opt.SpotCurrent.Else(r.opt.Given.SpotCurrent).Else(r.talkCond.SpotCurrent)
+}
+
+// spotLayout settles the currents of the spot columns.
+func (r *reader) spotLayout(device *column) error {
+	r.layout = layoutSpot
+	if device == nil {
+		if len(r.body) > 1 {
+			return r.ambiguous(r.headerLine, "--map device=COLUMN", "the spots have no device column")
+		}
+		if err := r.fileDevice(); err != nil {
+			return err
+		}
+	}
+	flag := r.opt.SpotCurrent.Else(r.opt.Given.SpotCurrent)
+	gates := r.mapped("vg")
+	for _, c := range append(gates, r.mapped("gm")...) {
+		had, known := c.spot.Get()
+		given, ok := flag.Get()
+		switch {
+		case known && ok && c.as == "vg" && given != had && len(gates) == 1:
+			r.remark(CodeFlagWins, "column %s says %g A, read as %g A, as --spot-current says", c.title(), had, given)
+			c.setSpot(flag)
+		case known && ok && c.as == "vg" && given != had:
+			r.remark(CodeFlagWins, "column %s keeps its own current of %g A: --spot-current cannot stand for %d columns", c.title(), had, len(gates))
+		case !known && r.spotCurrent().IsKnown():
+			c.setSpot(r.spotCurrent())
+		case !known && c.as == "gm" && len(gates) == 1:
+			c.spot, c.spotNum, c.spotExp = gates[0].spot, gates[0].spotNum, gates[0].spotExp
+		case !known:
+			return r.ambiguous(r.headerLine, "--spot-current 10mA", "column %s: at which current?", c.title())
+		}
+	}
+	for i, c := range gates {
+		for _, d := range gates[:i] {
+			if c.spot == d.spot {
+				return r.ambiguous(r.headerLine, fmt.Sprintf("--map vg=%d or --map vg=%d", d.index+1, c.index+1), "columns %s and %s are spots at the same current", d.title(), c.title())
+			}
+		}
+	}
+	return nil
+}
+
+func (c *column) setSpot(n record.Num) {
+	c.spot, c.spotNum, c.spotExp = n, "", 0
+}
+
+// spotText is the current of a spot column as a JSON number.
+func (c *column) spotText() string {
+	switch {
+	case c.spotNum == "":
+		return c.spot.String()
+	case c.spotExp == 0:
+		return c.spotNum
+	}
+	return fmt.Sprintf("%se%d", c.spotNum, c.spotExp)
+}

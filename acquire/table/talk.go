@@ -1,0 +1,368 @@
+package table
+
+import (
+	"regexp"
+	"strconv"
+	"strings"
+	"unicode"
+
+	"gatesill/store/record"
+)
+
+const (
+	maxTalk      = 1000 // bytes of a comment that are looked at
+	maxTalkLines = 1000
+)
+
+// What comments may say besides the words of headers.
+var talkWords = map[string]string{}
+
+const (
+	talkTol       = "tolerance"
+	talkRating    = "rating"
+	talkCircuit   = "circuit"
+	talkAmmeter   = "ammeter"
+	talkBurden    = "burden"
+	talkSpot      = "spot"
+	talkPulse     = "pulse width"
+	talkDuty      = "duty"
+	talkDelay     = "delay"
+	talkDwell     = "dwell"
+	talkPulsed    = "pulsed"
+	talkGateReset = "gate return"
+)
+
+func init() {
+	for kind, list := range map[string]string{
+		talkTol:       "tolerance tol rltol rltolerance toleranz rltoleranz tolerancia tolleranza tolerancja",
+		talkRating:    "rlrating rating ratedpower rlpower belastbarkeit",
+		talkCircuit:   "circuit schaltung circuito schakeling uklad messschaltung",
+		talkAmmeter:   "ammeter amperemeter ammeterin strommesser amperimetro ampermetro",
+		talkBurden:    "burden burdenresistance ammeterburden burde buerde",
+		talkSpot:      "spotcurrent testcurrent current idrain id draincurrent teststrom prufstrom pruefstrom messstrom",
+		talkPulse:     "pulsewidth pulse pulsbreite pulsdauer pulslange",
+		talkDuty:      "duty dutycycle tastgrad tastverhaltnis",
+		talkDelay:     "pulsedelay samplingdelay",
+		talkDwell:     "dwell dwelltime settle settling settlingtime settletime wartezeit",
+		talkPulsed:    "pulsed",
+		talkGateReset: "gatereturn gatemeterreturn",
+	} {
+		for _, w := range strings.Fields(list) {
+			talkWords[w] = kind
+		}
+	}
+}
+
+// addTalk keeps a comment that stands among the rows.
+func (r *reader) addTalk(line int, row []byte) {
+	if len(r.talk) < maxTalkLines {
+		r.talk = append(r.talk, remarkLine{line, string(row[:min(len(row), maxTalk)])})
+	}
+}
+
+// bare takes the comment mark off.
+func bare(text string) string {
+	return strings.TrimSpace(strings.TrimLeft(text, "#%!;/' \t"))
+}
+
+// said is one thing that a comment says.
+type said struct {
+	kind  string // a role, a short name, or one of the talk constants
+	key   string // as written, without unit
+	value string
+	unit  unit // of the key: VDD (V) = 12
+}
+
+var keyValue = regexp.MustCompile(`^([^:=]{1,60}?)\s*[:=]\s*(.+)$`)
+
+// listen reads a comment: pairs like "VDD = 12 V", several in a line.
+func listen(text string) []said {
+	var list []said
+	for _, part := range parts(bare(text)) {
+		key, value := "", ""
+		if m := keyValue.FindStringSubmatch(part); m != nil {
+			key, value = m[1], strings.TrimSpace(m[2])
+		} else if k, v, ok := strings.Cut(part, " "); ok && unicode.IsDigit([]rune(v + " ")[0]) {
+			key, value = k, v // VDD 12 V
+		}
+		if key == "" || value == "" {
+			continue
+		}
+		s := said{key: key, value: value}
+		if name, u, ok := splitUnit(key); ok && name != "" {
+			s.key, s.unit = name, u
+		}
+		f := fold(s.key)
+		if s.kind = talkWords[f]; s.kind == "" {
+			if w, ok := words[f]; ok && (w.rank == sure || w.role == string(RoleOperator)) {
+				s.kind = w.role
+			}
+		}
+		if s.kind == roleTorT {
+			s.kind = "temp"
+		}
+		if s.kind != "" {
+			list = append(list, s)
+		}
+	}
+	return list
+}
+
+// parts splits a comment at semicolons, bars, tabs, and commas that a blank
+// follows; a comma between digits may be a decimal mark.
+func parts(text string) []string {
+	var list []string
+	lo := 0
+	for i := 0; i < len(text); i++ {
+		c := text[i]
+		if c == ';' || c == '|' || c == '\t' || c == ',' && i+1 < len(text) && text[i+1] == ' ' {
+			list = append(list, strings.TrimSpace(text[lo:i]))
+			lo = i + 1
+		}
+	}
+	return append(list, strings.TrimSpace(text[lo:]))
+}
+
+// talkDevice is the device that a comment names, "" for none.
+func talkDevice(text string) string {
+	for _, s := range listen(text) {
+		if s.kind == string(RoleDevice) {
+			return strings.Trim(s.value, `" `)
+		}
+	}
+	return ""
+}
+
+// readTalk takes from comments what was said of the conditions. It is called
+// before the rows, for what they depend on, and again when all comments and the
+// decimal mark are known.
+func (r *reader) readTalk() {
+	r.talkCond, r.talkText, r.file.Proposed = record.Condition{}, map[Role]string{}, nil
+	for _, t := range r.talk {
+		for _, s := range listen(t.text) {
+			r.propose(t.line, s)
+		}
+	}
+}
+
+// propose takes one thing that a comment says, when it can be read.
+func (r *reader) propose(line int, s said) {
+	c := &r.talkCond
+	switch s.kind {
+	case string(RoleDevice):
+		if r.talkDevice == "" && line < r.bodyLine {
+			r.talkDevice = strings.Trim(s.value, `" `)
+		}
+	case string(RoleOperator), string(RoleFixture), string(RoleDate), string(RoleDateCode), string(RoleMarking), string(RoleTube), roleTime:
+		role := Role(s.kind)
+		if s.kind == roleTime {
+			role = RoleDate
+		}
+		value := cut(strings.Trim(s.value, `" `), record.MaxName)
+		if have := r.talkText[role]; have == "" {
+			r.talkText[role] = value
+			r.proposed(line, string(role), value)
+		}
+	case talkCircuit:
+		r.proposeText(line, "circuit", circuitOf(s.value), (*string)(&c.Circuit))
+	case talkAmmeter:
+		r.proposeText(line, "ammeter", oneOf(s.value, "drain", "source", "none"), &c.Ammeter)
+	case talkGateReset:
+		r.proposeText(line, "gate return", oneOf(s.value, "source", "ground"), &c.GateReturn)
+	case talkPulsed:
+		word := oneOf(s.value, "pulsed", "dc")
+		if word == "" {
+			word = map[string]string{"yes": "pulsed", "ja": "pulsed", "no": "dc", "nein": "dc"}[fold(s.value)]
+		}
+		r.proposeText(line, "mode", word, &c.Pulsed)
+	default:
+		r.proposeNumber(line, s)
+	}
+}
+
+// proposeNumber takes a condition that is a number.
+func (r *reader) proposeNumber(line int, s said) {
+	c := &r.talkCond
+	var to *record.Num
+	dim := dimOf(s.kind)
+	name := s.kind
+	switch s.kind {
+	case "vdd":
+		name, to = "V_DD", &c.VDD
+	case "vd":
+		name, to = "V_DS", &c.VDS
+	case string(RoleRL):
+		name, to = "R_L", &c.RL
+		r.proposeFraction(line, "tolerance of R_L", s.value, &c.RLTol)
+		if x, ok := talkNumber(afterNumber(s.value), "W", unit{}, r.num.mark); ok {
+			r.proposeNum(line, "rating of R_L", x, "W", &c.RLRating)
+		}
+	case "temp":
+		name, to = "temperature", &c.Temp
+		r.proposeText(line, "temperature of", tempOf(s.key), &c.TempOf)
+	case talkTol:
+		r.proposeFraction(line, "tolerance of R_L", s.value, &c.RLTol)
+	case talkDuty:
+		r.proposeFraction(line, "duty cycle", s.value, &c.PulseDuty)
+	case talkRating:
+		name, dim, to = "rating of R_L", "W", &c.RLRating
+	case talkBurden:
+		name, dim, to = "burden of the ammeter", "ohm", &c.Burden
+	case talkSpot:
+		name, dim, to = "spot current", "A", &c.SpotCurrent
+	case talkPulse:
+		name, dim, to = "pulse width", "s", &c.PulseWidth
+	case talkDelay:
+		name, dim, to = "pulse delay", "s", &c.PulseDelay
+	case talkDwell:
+		name, dim, to = "dwell", "s", &c.Dwell
+	}
+	if to == nil {
+		return
+	}
+	if x, ok := talkNumber(s.value, dim, s.unit, r.num.mark); ok {
+		r.proposeNum(line, name, x, dim, to)
+	}
+}
+
+func (r *reader) proposeNum(line int, name string, x float64, dim string, to *record.Num) {
+	if have, ok := to.Get(); ok {
+		if have != x {
+			r.remark(CodeTalkDiffers, "line %d says %s %g %s, a line above says %g: the first is kept", line, name, x, dim, have)
+		}
+		return
+	}
+	*to = record.Known(x)
+	r.proposed(line, name, strconv.FormatFloat(x, 'g', -1, 64)+" "+dim)
+}
+
+func (r *reader) proposeText(line int, name, value string, to *string) {
+	switch {
+	case value == "":
+	case *to == "":
+		*to = value
+		r.proposed(line, name, value)
+	case *to != value:
+		r.remark(CodeTalkDiffers, "line %d says %s %s, a line above says %s: the first is kept", line, name, value, *to)
+	}
+}
+
+func (r *reader) proposeFraction(line int, name, text string, to *record.Num) {
+	m := percent.FindStringSubmatch(text)
+	if m == nil {
+		return
+	}
+	x, err := strconv.ParseFloat(strings.Replace(m[1], ",", ".", 1), 64)
+	if err != nil || x <= 0 || x > 100 {
+		return
+	}
+	if have, ok := to.Get(); ok && have == x/100 {
+		return
+	}
+	r.proposeNum(line, name, x/100, "of it", to)
+}
+
+func (r *reader) proposed(line int, name, value string) {
+	r.file.Proposed = append(r.file.Proposed, name+" "+value+" (line "+strconv.Itoa(line)+")")
+}
+
+var (
+	percent   = regexp.MustCompile(`([0-9]+(?:[.,][0-9]+)?)\s*%`)
+	numberIn  = regexp.MustCompile(`^[~≈=]?\s*([+-]?[0-9]+(?:[.,][0-9]+)?(?:[eE][+-]?[0-9]+)?)\s*([^\s,;±()%0-9]*)`)
+	thousands = regexp.MustCompile(`^[+-]?[1-9][0-9]{0,2},[0-9]{3}$`)
+)
+
+// talkNumber reads the number that a text begins with, in the dimension. A bare
+// one is in the unit of the key, else in the base unit. A comma that may stand
+// between thousands is read only when the file has decimal commas.
+func talkNumber(text, dim string, key unit, mark byte) (float64, bool) {
+	m := numberIn.FindStringSubmatch(text)
+	if m == nil || thousands.MatchString(m[1]) && mark != ',' {
+		return 0, false
+	}
+	num := strings.Replace(m[1], ",", ".", 1)
+	exp := 0
+	u, isUnit := readUnit(m[2])
+	if isUnit {
+		u, isUnit = u.as(dim)
+	}
+	switch {
+	case m[2] == "":
+		if k, ok := key.as(dim); ok {
+			exp = k.exp
+		} else if dim == "W" {
+			return 0, false // a rating must say W
+		}
+	case isUnit:
+		exp = u.exp
+	default: // 4k7, 10R
+		first := strings.Fields(text)[0]
+		if first == m[1] { // a number, a blank, and no unit of this
+			return 0, false
+		}
+		x, err := record.ParseNumber(strings.Replace(first, ",", ".", 1), dim)
+		return x, err == nil && dim != "W"
+	}
+	d, rest, ok := numeral{mark: '.'}.decimal(num)
+	if !ok || rest != "" {
+		return 0, false
+	}
+	x, err := strconv.ParseFloat(string(d.json(nil, exp)), 64)
+	return x, err == nil
+}
+
+// afterNumber is what stands behind the first number and its unit; there the
+// rating of a resistor may follow.
+func afterNumber(text string) string {
+	if i := strings.IndexAny(text, " ,"); i >= 0 {
+		fields := strings.FieldsFunc(text[i:], func(c rune) bool { return c == ' ' || c == ',' })
+		for j, f := range fields {
+			if strings.HasSuffix(f, "W") && len(f) > 1 {
+				return f
+			}
+			if f == "W" && j > 0 {
+				return fields[j-1] + " W"
+			}
+		}
+	}
+	return ""
+}
+
+// circuitOf reads how a comment names the circuit.
+func circuitOf(text string) string {
+	f := fold(text)
+	for _, c := range []struct{ word, circuit string }{
+		{"diode", "diode"}, {"draintiedtogate", "diode"}, {"gatetiedtodrain", "diode"}, {"gateanddraintied", "diode"}, {"draingate", "diode"}, {"gatedrain", "diode"},
+		{"fixed", "fixed"}, {"constantvds", "fixed"}, {"festevds", "fixed"}, {"vdsconst", "fixed"},
+		{"load", "load"}, {"last", "load"}, {"charge", "load"}, {"carga", "load"}, {"carico", "load"}, {"resistor", "load"}, {"rl", "load"},
+	} {
+		if strings.Contains(f, c.word) {
+			return c.circuit
+		}
+	}
+	return ""
+}
+
+// oneOf gives the first of the words that the text names.
+func oneOf(text string, list ...string) string {
+	f := fold(text)
+	for _, w := range list {
+		if strings.Contains(f, w) {
+			return w
+		}
+	}
+	return ""
+}
+
+// tempOf tells from the name of a temperature of what it is.
+func tempOf(name string) string {
+	switch f := fold(name); {
+	case f == "tc" || strings.Contains(f, "case") || strings.Contains(f, "gehause") || strings.Contains(f, "gehaeuse"):
+		return "case"
+	case f == "ta" || strings.Contains(f, "amb") || strings.Contains(f, "umg") || strings.Contains(f, "room"):
+		return "ambient"
+	case f == "ths" || strings.Contains(f, "sink") || strings.Contains(f, "kuhl") || strings.Contains(f, "kuehl"):
+		return "sink"
+	}
+	return ""
+}
