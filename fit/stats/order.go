@@ -85,16 +85,38 @@ func MedianSorted(sorted []float64) float64 {
 // compare with a standard deviation. NaN for an empty slice, and where half of
 // the values or more are infinite. Checked: TestMAD.
 func MAD(x []float64) float64 {
-	m := Median(x)
+	return MADSorted(Sorted(x))
+}
+
+// MADSorted is [MAD] of an ascending slice, in linear time.
+func MADSorted(sorted []float64) float64 {
+	m := MedianSorted(sorted)
 	if math.IsNaN(m) {
 		return math.NaN()
 	}
-	d := make([]float64, len(x))
-	for i, v := range x {
-		d[i] = math.Abs(v - m)
+	// Distances grow to both sides of the median: merge the two runs up to the
+	// middle one.
+	n := len(sorted)
+	right, _ := slices.BinarySearch(sorted, m)
+	left := right - 1
+	var last, before float64
+	for range n/2 + 1 {
+		before = last
+		if right >= n || left >= 0 && m-sorted[left] <= sorted[right]-m {
+			last = m - sorted[left]
+			left--
+		} else {
+			last = sorted[right] - m
+			right++
+		}
 	}
-	slices.Sort(d)
-	return MedianSorted(d)
+	if n%2 == 0 {
+		last = before/2 + last/2
+	}
+	if math.IsInf(last, 0) {
+		return math.NaN()
+	}
+	return last
 }
 
 // IQR is the distance between the quartiles of sorted by the rule named, NaN for

@@ -223,3 +223,20 @@ func TestTooFew(t *testing.T) {
 		t.Errorf("t at probability 0: %v, want NaN", v)
 	}
 }
+
+// MADSorted merges instead of sorting; it must give what sorting gives.
+func TestMADAgainstSorting(t *testing.T) {
+	rng := rand.New(rand.NewPCG(5, 6))
+	for run := 0; run < 500; run++ {
+		x := make([]float64, 1+rng.IntN(30))
+		for i := range x {
+			x[i] = math.Round(8*rng.NormFloat64()) / 4
+		}
+		m := Median(x)
+		d := make([]float64, len(x))
+		for i, v := range x {
+			d[i] = math.Abs(v - m)
+		}
+		near(t, "MAD", MAD(x), Median(d), 1e-15)
+	}
+}
