@@ -2,10 +2,29 @@
 // apart: spread, flags, bins.
 //
 // It takes results of single devices and gives back numbers and sentences; it
-// opens nothing, draws nothing, and decides nothing for the person.
+// opens nothing, draws nothing, and decides nothing for the person. It says that
+// a device stands apart from its lot, never that it is genuine or not, and where
+// there are too few devices to judge one another it says that instead.
+//
+// [SpreadOf] looks in this order: devices with a fault of their own (open,
+// shorted, leaking, ...), whether the lot is two populations, and only then
+// single devices outside the limits of their lot. The limits are set so that at
+// most 2 % of lots without anything odd, of any size, get any flag for standing
+// apart or are called two populations; that holds for values spread like a
+// normal distribution (gains: like a log-normal one) and was found by
+// simulation, see limits.go.
 package lot
 
 import "gatesill/fit"
+
+// CodeOutsideLimits is the flag of a device whose threshold is outside the
+// limits of its data sheet.
+const CodeOutsideLimits = "outside-limits"
+
+// KeySpan is the gate span from the test current to the idle current, V: the
+// drive strength of a device of which nothing else tells it (two spots). It is
+// in Limits and Distance only, and only where no gain is known.
+const KeySpan fit.Key = "gate_span_V"
 
 // Device is one device of the lot with the result of its fit.
 type Device struct {
@@ -14,25 +33,37 @@ type Device struct {
 	Result  fit.Result
 }
 
-// Summary is the spread of one quantity over the devices that have it. NaN
-// where n is too small for the number.
+// Summary is the spread of one quantity over the devices that have it, in the
+// unit of the quantity. NaN where n is too small for the number: SD and RobustSD
+// need two values, Median and RobustSD more than half of the devices below the
+// current.
 type Summary struct {
 	N        int // devices with a value
-	Above    int // devices that never reach the current; counted as above every value in medians
+	Above    int // devices that never reach the current; counted as above every value in Median and RobustSD
 	Mean     float64
 	SD       float64
 	Median   float64
-	RobustSD float64 // 1.4826 × MAD, floored by resolution and by the readings' own u
+	RobustSD float64 // 1.4826 × MAD, not below what step and u of the readings let it be
 	Min, Max float64
+	Step     float64 // step of the readings, given or found from the values; 0: none seen
 }
 
-// Limit is the range outside which a device is flagged for one quantity.
+// Limit is the range outside which a device is flagged for one quantity, in its
+// unit. It is K robust spreads (of the logarithm, for gains) on both sides of the
+// median, widened by half a step of the readings; without a K given it is
+// narrowed to what the generalised ESD test lets pass.
 type Limit struct {
 	K     float64 // multiples of the robust spread
-	Basis string  // "this lot" or "part history"
+	Basis string  // BasisLot or BasisHistory
 	Low   float64
 	High  float64
 }
+
+// What a [Limit] rests on.
+const (
+	BasisLot     = "this lot"
+	BasisHistory = "part history"
+)
 
 // Reason is why a device is flagged: a code of fit.Codes and one sentence.
 type Reason struct {
@@ -41,7 +72,9 @@ type Reason struct {
 }
 
 // Verdict is what the lot says of one device. Distance holds, by quantity, how
-// many robust spreads it lies from the median (NaN when it has no value).
+// many robust spreads it lies from the median (NaN when it has no value); gains
+// on a logarithmic scale. In a lot with a small second population that is the
+// median and spread of the greater one.
 type Verdict struct {
 	Name     string
 	Flagged  bool
@@ -52,10 +85,10 @@ type Verdict struct {
 // Split is the parting of a lot in two populations at a gap of one quantity.
 type Split struct {
 	By         fit.Key
-	At         float64 // middle of the gap
-	Low, High  []string
-	GapLow     float64 // greatest value of the lower group
-	GapHigh    float64 // least value of the upper group
+	At         float64  // middle of the gap
+	Low, High  []string // names, in the order given
+	GapLow     float64  // greatest value of the lower group
+	GapHigh    float64  // least value of the upper group
 	Text       string
 	SecondAlso fit.Key // another quantity that parts the lot in the same way, "" if none
 }
@@ -75,36 +108,44 @@ type Spread struct {
 // Known is the spread of the same part under like conditions, from earlier
 // lots, used where a lot is too small to judge itself.
 type Known struct {
-	RobustSD map[fit.Key]float64
-	Devices  int
+	RobustSD map[fit.Key]float64 // unit of the quantity
+	Devices  int                 // fewer than 8: not used
 	Lots     int
 }
 
 // SpreadOptions are the choices of [SpreadOf].
 type SpreadOptions struct {
-	SortedBy     fit.Key             // primary quantity
-	K            float64             // limit in robust spreads; 0: the default of the lot's size
+	SortedBy     fit.Key             // primary quantity; "": gate bias at the idle current where there is one, else V_GS(th)
+	K            float64             // limit in robust spreads; 0 or NaN: the default of the lot's size
 	Known        *Known              // nil: none
 	Resolution   map[fit.Key]float64 // step of the readings; 0 or absent: found from the data
-	LeakageLimit float64             // A, drain leakage that is too much; 0: default rule
-	VgsthMin     float64             // V, data-sheet limits; NaN: none
+	LeakageLimit float64             // A, drain leakage that is too much; 0 or NaN: default rule, see physical.go
+	TestCurrent  float64             // A, for the default rule of leakage; 0 or NaN: not known
+	PChannel     bool                // more negative is 'above', limits of the data sheet by magnitude
+	VgsthMin     float64             // V, data-sheet limits; NaN, or both 0: none
 	VgsthMax     float64
 }
 
 // Placed is a device in a bin.
 type Placed struct {
 	Name  string
-	Value float64
-	U     float64
-	Maybe string // bin across the edge, "" when the device is more than 2u away from every edge
+	Value float64 // in the unit of the quantity
+	U     float64 // standard uncertainty within the session; NaN: not known
+	Maybe string  // bin across the nearest edge, [OutsideEdges] beyond the outermost; "" when every edge is more than 2u away, or u is not known
 }
 
-// Bin holds the devices with Low <= value < High (the last bin also value ==
-// High).
+// OutsideEdges is what Maybe says of a device that may lie outside the edges
+// given.
+const OutsideEdges = "outside"
+
+// Bin holds the devices with Low <= value < High; the last bin of a lot sorted by
+// edges or by number also those with value == High. Numbers that differ by less
+// than a billionth of the width of a bin count as the same, so that 2.80 lies in
+// the bin from 2.80 V even where the computer holds it as a little less.
 type Bin struct {
 	Name      string // A, B, ... Z, AA, ...
 	Low, High float64
-	Devices   []Placed // ascending by value
+	Devices   []Placed // ascending by value, then in the order given
 }
 
 // Unsorted is a device in no bin, and why.
@@ -116,13 +157,19 @@ type Unsorted struct {
 // Sorting is a lot put in bins.
 type Sorting struct {
 	By            fit.Key
-	SmallestWidth float64 // 4u, median u of the devices; NaN if no u is known
-	Bins          []Bin   // ascending; empty bins included
-	Unsorted      []Unsorted
+	SmallestWidth float64    // 4u, median u of the devices; NaN if no u is known
+	Bins          []Bin      // ascending; empty bins included
+	Unsorted      []Unsorted // in the order given
 	Warnings      []fit.Warning
 }
 
-// SortOptions: exactly one of Width, Edges, Bins is set.
+// SortOptions say how a lot is put in bins; exactly one of Width, Edges, Bins is
+// set.
+//
+// With a width the edges are whole multiples of it (50 mV: 2.80 V, 2.85 V, ...),
+// so that lots sorted with the same width have the same bins. With a number the
+// range from the least to the greatest device is cut in bins of one width, not in
+// groups of one size: those would part devices that are nearly the same.
 type SortOptions struct {
 	By    fit.Key
 	Width float64   // unit of By

@@ -1,0 +1,219 @@
+package lot
+
+import (
+	"math"
+	"slices"
+
+	"gatesill/fit"
+	"gatesill/fit/stats"
+)
+
+// column is one quantity over the devices of the lot, on the scale on which it
+// is judged: voltages as they are (turned round for p-channel parts, so that
+// greater always means more gate voltage), gains by their logarithm. On that
+// scale a lot is near enough to a normal distribution, and a gain that is off by
+// half counts the same at every size.
+type column struct {
+	key    fit.Key
+	log    bool
+	sign   float64   // -1 for the voltages of p-channel parts
+	v      []float64 // by device, as it is, in the unit of the quantity
+	x      []float64 // by device, on the judged scale; NaN: no value
+	u      []float64 // by device, standard uncertainty within the session; 0: not known
+	above  []bool    // by device: never reaches the current; nil: none can
+	step   float64   // of the readings, 0: none seen
+	least  float64   // spread below which nothing is told apart: a microvolt, or a millionth of a gain
+	sorted []float64 // the finite x, ascending
+}
+
+// raw turns a value on the judged scale back into the unit of the quantity.
+func (c *column) raw(x float64) float64 {
+	if c.log {
+		return math.Exp(x)
+	}
+	return c.sign * x
+}
+
+// numAbove counts the devices that are above every value.
+func (c *column) numAbove() int {
+	n := 0
+	for _, a := range c.above {
+		if a {
+			n++
+		}
+	}
+	return n
+}
+
+// medianU is the median uncertainty of the values of which it is known, 0 where
+// none is.
+func (c *column) medianU() float64 {
+	var u []float64
+	for i, v := range c.u {
+		if v > 0 && !math.IsNaN(c.x[i]) {
+			u = append(u, v)
+		}
+	}
+	if len(u) == 0 {
+		return 0
+	}
+	return stats.Median(u)
+}
+
+// floorOf is the smallest robust spread that can be told from readings with that
+// step and uncertainty. When more than half of the readings are the same, all
+// that is known is that half of the values lie within half a step, which is
+// 1.4826/2 steps of standard deviation.
+func floorOf(step, u float64) float64 {
+	return math.Max(stats.MADScale*step/2, u)
+}
+
+// only is the column with the devices for which keep says no left out.
+func (c *column) only(keep func(i int) bool) *column {
+	d := *c
+	d.x = slices.Clone(c.x)
+	d.above = slices.Clone(c.above)
+	for i := range d.x {
+		if !keep(i) {
+			d.x[i] = math.NaN()
+			if d.above != nil {
+				d.above[i] = false
+			}
+		}
+	}
+	d.sort()
+	return &d
+}
+
+func (c *column) sort() {
+	c.sorted = make([]float64, 0, len(c.x))
+	for _, v := range c.x {
+		if !math.IsNaN(v) {
+			c.sorted = append(c.sorted, v)
+		}
+	}
+	slices.Sort(c.sorted)
+}
+
+// isGain reports whether a quantity is a measure of drive strength.
+func isGain(k fit.Key) bool {
+	return k == fit.KeyBeta || k == fit.KeyGmMax || k == fit.KeyGmIdle || k == KeySpan
+}
+
+// isThreshold reports whether a quantity is a gate voltage at a current.
+func isThreshold(k fit.Key) bool { return k == fit.KeyVgsth || k == fit.KeyVgsIdle }
+
+// counts reports whether a device takes part in the statistics of its lot.
+func counts(d *Device) bool {
+	return !d.Control && (d.Result.State == fit.Measured || d.Result.State == fit.Above)
+}
+
+// valueOf is a quantity of a device with its uncertainty; NaN: none. KeySpan is
+// made from two spots.
+func valueOf(d *Device, k fit.Key) (x, u float64) {
+	if k == KeySpan {
+		a, b := d.Result.Vgsth, d.Result.VgsIdle
+		return b.Value - a.Value, math.Hypot(a.U, b.U)
+	}
+	q := d.Result.At(k)
+	if q == nil || math.IsInf(q.Value, 0) {
+		return math.NaN(), math.NaN()
+	}
+	return q.Value, q.U
+}
+
+// columnOf reads one quantity off the devices that count. step is that of the
+// readings, in the unit of the quantity; 0 or NaN: to be found.
+func columnOf(devs []Device, k fit.Key, pchannel bool, step float64) *column {
+	c := &column{key: k, log: isGain(k), sign: 1, least: 1e-6,
+		v: make([]float64, len(devs)), x: make([]float64, len(devs)), u: make([]float64, len(devs))}
+	if pchannel && !c.log {
+		c.sign = -1
+	}
+	var read []float64
+	for i := range devs {
+		c.x[i] = math.NaN()
+		if !counts(&devs[i]) {
+			continue
+		}
+		v, u := valueOf(&devs[i], k)
+		if math.IsNaN(v) || math.IsInf(v, 0) || c.log && v == 0 {
+			continue // no gain is 0
+		}
+		c.v[i], c.x[i] = v, c.sign*v
+		if c.log {
+			// A gain may have the sign of its device's currents.
+			c.x[i], u = math.Log(math.Abs(v)), u/math.Abs(v)
+		}
+		if u > 0 && !math.IsInf(u, 0) {
+			c.u[i] = u
+		}
+		read = append(read, v)
+	}
+	if !(step > 0) || math.IsInf(step, 0) {
+		step = 0
+		if k != KeySpan { // the step of a difference is that of its parts
+			step = stepOf(read)
+		}
+	}
+	c.step = step
+	if c.log && step > 0 && len(read) > 0 {
+		c.step = step / math.Abs(stats.Median(read))
+	}
+	if isThreshold(k) {
+		c.markAbove(devs)
+	}
+	c.sort()
+	return c
+}
+
+// markAbove finds the devices that never reach the current of the quantity. A
+// quantity that no device has was not asked for.
+func (c *column) markAbove(devs []Device) {
+	c.above = make([]bool, len(devs))
+	for i := range devs {
+		r := &devs[i].Result
+		c.above[i] = counts(&devs[i]) && math.IsNaN(c.x[i]) &&
+			(r.State == fit.Above || r.Has(fit.CodeAboveRange))
+	}
+}
+
+// summary of the column, in the unit of the quantity. For gains it is taken of
+// the values themselves, not of their logarithms.
+func (c *column) summary() Summary {
+	nan := math.NaN()
+	s := Summary{N: len(c.sorted), Mean: nan, SD: nan, Median: nan, RobustSD: nan, Min: nan, Max: nan}
+	if s.N == 0 {
+		s.Above = c.numAbove()
+		return s
+	}
+	plain := make([]float64, 0, len(c.x))
+	for i, v := range c.v {
+		if !math.IsNaN(c.x[i]) {
+			plain = append(plain, c.sign*v)
+		}
+	}
+	slices.Sort(plain)
+	s.Mean, s.SD = stats.MeanSD(plain)
+	s.Min, s.Max = plain[0], plain[s.N-1]
+	s.Above = c.numAbove()
+	for range s.Above {
+		plain = append(plain, math.Inf(1))
+	}
+	s.Median = stats.MedianSorted(plain)
+	s.Step = c.step
+	u := c.medianU()
+	if c.log {
+		s.Step *= math.Abs(s.Median)
+		u *= math.Abs(s.Median)
+	}
+	if s.N > 1 {
+		if mad := stats.MADSorted(plain); !math.IsNaN(mad) {
+			s.RobustSD = math.Max(stats.MADScale*mad, floorOf(s.Step, u))
+		}
+	}
+	if c.sign < 0 {
+		s.Mean, s.Median, s.Min, s.Max = -s.Mean, -s.Median, -s.Max, -s.Min
+	}
+	return s
+}

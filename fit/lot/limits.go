@@ -1,0 +1,200 @@
+package lot
+
+import (
+	"math"
+
+	"gatesill/fit/stats"
+)
+
+// How the limits are set. One quantity of a lot can raise a false alarm in three
+// ways: the lot looks like two populations; a device is farther than k robust
+// spreads from the median; a device fails the generalised ESD test among the
+// others. The last is much the stronger in lots below forty devices, where the
+// median absolute deviation is a poor measure of spread; the first two hold
+// where many devices are odd. The levels of the parting and of the ESD test are
+// fixed below, and k was found by simulation so that all three together, over
+// all quantities looked at, happen in 1.9 % of normal lots: see tables.go and
+// TestLongTables, which makes the tables again. Quantities are taken as
+// independent, which errs on the side of fewer flags where they are not.
+const (
+	totalLevel = 0.019 // of any false alarm in a lot
+	splitLevel = 0.004 // of these, of being called two populations
+	esdLevel   = 0.008 // of these, nominal level of the ESD test
+	knownLevel = 0.015 // where the spread is known from earlier lots
+)
+
+// fewest is the smallest number of devices that can judge one another.
+const fewest = 8
+
+// mostQuantities is what the tables cover; more are taken as that many.
+const mostQuantities = 6
+
+// DefaultLimit is the number of robust spreads beyond which one of n devices is
+// flagged when that many quantities are looked at. NaN below 8 devices: they are
+// too few to judge one another.
+//
+// Source: simulation of normal lots, at least 20,000 runs for each size; between
+// the sizes interpolated over the logarithm of n. The values are a little above
+// those for a limit alone at 2 % (one quantity: n = 10 5.9, 20 4.7, 40 4.2)
+// because the parting and the ESD test have their share. Checked:
+// TestLimitAlone, TestFalseAlarms.
+func DefaultLimit(n, quantities int) float64 {
+	if n < fewest {
+		return math.NaN()
+	}
+	return lookup(limitTable, n, quantities)
+}
+
+// splitCritical is the score that the parting of a lot of n must exceed.
+func splitCritical(n, quantities int) float64 {
+	return lookup(splitTable, n, quantities)
+}
+
+// sizeRow is one row of a table: a value for 1 to 6 quantities.
+type sizeRow struct {
+	n      int
+	values [mostQuantities]float64
+}
+
+// lookup interpolates over ln n, between rows that are both even or both odd
+// while the sizes are small: a median of an odd number is another thing than one
+// of an even number. Beyond the last row it goes on in the direction of the last
+// two rows.
+func lookup(table []sizeRow, n, quantities int) float64 {
+	q := min(max(quantities, 1), mostQuantities) - 1
+	var a, b *sizeRow
+	for i := range table {
+		r := &table[i]
+		if r.n == n {
+			return r.values[q]
+		}
+		if n < sameParityBelow && r.n < sameParityBelow && (r.n-n)%2 != 0 {
+			continue
+		}
+		if r.n > n && b != nil && b.n > n {
+			break
+		}
+		a, b = b, r
+	}
+	at := (math.Log(float64(n)) - math.Log(float64(a.n))) / (math.Log(float64(b.n)) - math.Log(float64(a.n)))
+	return a.values[q] + at*(b.values[q]-a.values[q])
+}
+
+// sameParityBelow is the size from which odd and even lots are alike.
+const sameParityBelow = 60
+
+// band is the range in which the devices of one family lie, on the judged scale.
+type band struct {
+	n        int
+	mid, sd  float64 // median and robust spread
+	k        float64
+	low      float64
+	high     float64
+	narrowed bool // by the ESD test
+	basis    string
+}
+
+// bandOf gives the limits of a column of at least 8 devices. k 0: the default
+// for that many quantities.
+func bandOf(c *column, k float64, quantities int) band {
+	b := center(c)
+	b.basis, b.k = BasisLot, k
+	if k == 0 {
+		b.k = DefaultLimit(b.n, quantities)
+	}
+	b.widen(c)
+	if k == 0 {
+		b.narrow(c, esdLevel/float64(quantities))
+	}
+	return b
+}
+
+// center is median and robust spread of a column, with no limits yet.
+func center(c *column) band {
+	all := c.sorted
+	if above := c.numAbove(); above > 0 {
+		all = append(make([]float64, 0, len(c.sorted)+above), c.sorted...)
+		for range above {
+			all = append(all, math.Inf(1))
+		}
+	}
+	sd := stats.MADScale * stats.MADSorted(all)
+	if !math.IsNaN(sd) {
+		sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.medianU()))
+	}
+	return band{n: len(c.sorted), mid: stats.MedianSorted(all), sd: sd, low: math.Inf(-1), high: math.Inf(1)}
+}
+
+// widen sets the limits k robust spreads from the median, with half a step of
+// slack: a reading may be that much nearer than it looks.
+func (b *band) widen(c *column) {
+	b.low = b.mid - b.k*b.sd - c.step/2
+	b.high = b.mid + b.k*b.sd + c.step/2
+}
+
+// narrow takes the limits in to what the generalised ESD test lets pass: the
+// range, seen from the devices it leaves, in which one more device would not be
+// taken out.
+func (b *band) narrow(c *column, level float64) {
+	n := len(c.sorted)
+	lo, hi := stats.ESDInner(c.sorted, level, n/4)
+	mean, sd := stats.MeanSD(c.sorted[lo:hi])
+	sd = math.Max(math.Max(sd, c.least), math.Max(c.step/2, c.medianU()))
+	left := float64(hi - lo)
+	reach := stats.UpperT(level/(2*(left+1)), left-1)*sd*math.Sqrt(1+1/left) + c.step/2
+	if low := mean - reach; low > b.low {
+		b.low, b.narrowed = low, true
+	}
+	if high := mean + reach; high < b.high {
+		b.high, b.narrowed = high, true
+	}
+}
+
+// bandKnown gives the limits of a column from the spread of earlier lots, sd on
+// the judged scale: each of n devices against the median of this lot, corrected
+// for their number and that of the quantities.
+//
+// A spread found from some devices is itself uncertain: a median absolute
+// deviation of N values is about as good as a standard deviation of 0.37 N.
+func bandKnown(c *column, sd float64, devices int, k float64, quantities int) band {
+	b := center(c)
+	b.sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.medianU()))
+	b.basis, b.k = BasisHistory, k
+	if k == 0 {
+		b.k = stats.UpperT(knownLevel/float64(2*max(b.n, 1)*quantities), 0.37*float64(devices))
+	}
+	b.widen(c)
+	return b
+}
+
+// outside reports whether device i lies beyond the limits. Where its own reading
+// is worse than the spread of the lot, the limits are as many times as far.
+func (b *band) outside(c *column, i int) bool {
+	x := c.x[i]
+	if math.IsNaN(x) {
+		return false
+	}
+	if worse := c.u[i] / b.sd; worse > 1 {
+		x = b.mid + (x-b.mid)/worse
+	}
+	return x < b.low || x > b.high
+}
+
+// distance of device i from the median in robust spreads, NaN where it has no
+// value or the lot no spread.
+func (b *band) distance(c *column, i int) float64 {
+	d := c.x[i] - b.mid
+	if d == 0 {
+		return 0
+	}
+	return d / math.Max(b.sd, c.u[i])
+}
+
+// limit is the band in the unit of the quantity.
+func (b *band) limit(c *column) Limit {
+	l := Limit{K: b.k, Basis: b.basis, Low: c.raw(b.low), High: c.raw(b.high)}
+	if l.Low > l.High {
+		l.Low, l.High = l.High, l.Low
+	}
+	return l
+}

@@ -1,0 +1,175 @@
+package lot
+
+import (
+	"fmt"
+	"math"
+	"math/rand/v2"
+	"os"
+	"slices"
+	"strings"
+	"sync"
+	"testing"
+
+	"gatesill/fit/stats"
+)
+
+// The tables of tables.go are made here, by simulation:
+//
+//	GATESILL_LONG=1 go test ./fit/lot -run TestLong -v -timeout 2h       checks them
+//	GATESILL_LONG=write go test ./fit/lot -run TestLongTables -timeout 2h  makes them again
+//
+// The seeds are fixed, so making them again on any machine gives the same file.
+
+// long skips a test that takes minutes, unless it is asked for.
+func long(t *testing.T) string {
+	t.Helper()
+	v := os.Getenv("GATESILL_LONG")
+	if v == "" {
+		t.Skip("takes minutes; set GATESILL_LONG=1 to run it")
+	}
+	return v
+}
+
+// sizes of the tables: every one while odd and even ones differ, then sparser.
+var sizes = []int{4, 5, 6, 7, 8, 9, 10, 11, 12, 13, 14, 15, 16, 17, 18, 19, 20, 21, 22, 23, 24, 27, 28, 32, 33, 38, 39,
+	45, 46, 53, 54, 60, 80, 100, 150, 200, 300, 500, 1000, 2000, 5000, 20000}
+
+func runsFor(n int) int {
+	return max(20_000, min(1_000_000, 60_000_000/n))
+}
+
+// cleanLots simulates one quantity of normal lots of n devices.
+type cleanLots struct {
+	score    []float64 // of the parting, by lot
+	farthest []float64 // robust spreads from the median to the farthest device
+	esd      [mostQuantities][]bool
+}
+
+func simulateClean(n, runs int, draw func(*rand.Rand) float64) cleanLots {
+	c := cleanLots{score: make([]float64, runs), farthest: make([]float64, runs)}
+	for q := range c.esd {
+		c.esd[q] = make([]bool, runs)
+	}
+	rng := rand.New(rand.NewPCG(uint64(n), 20240229))
+	x := make([]float64, n)
+	for r := range runs {
+		for i := range x {
+			x[i] = draw(rng)
+		}
+		slices.Sort(x)
+		c.score[r] = partingOf(x, 0, 0).score
+		b := center(&column{sorted: x})
+		c.farthest[r] = math.Max(b.mid-x[0], x[n-1]-b.mid) / b.sd
+		for q := range c.esd {
+			lo, hi := stats.ESDInner(x, esdLevel/float64(q+1), n/4)
+			c.esd[q][r] = hi-lo < n
+		}
+	}
+	return c
+}
+
+func normal(rng *rand.Rand) float64 { return rng.NormFloat64() }
+
+// t5 has tails about as heavy as lots of real parts may have.
+func t5(rng *rand.Rand) float64 {
+	var s float64
+	for range 5 {
+		z := rng.NormFloat64()
+		s += z * z
+	}
+	return rng.NormFloat64() / math.Sqrt(s/5)
+}
+
+// leastScore keeps the parting from being asked for next to no evidence in large
+// lots, where the conditions of shape alone hold the level for normal lots.
+const leastScore = 4
+
+// tableRows works out one row of each table.
+func tableRows(n, runs int) (split, limit sizeRow) {
+	c := simulateClean(n, runs, normal)
+	split.n, limit.n = n, n
+	scores := slices.Clone(c.score)
+	slices.Sort(scores)
+	for q := range mostQuantities {
+		m := float64(q + 1)
+		critical := math.Max(leastScore, scores[int(float64(runs)*(1-splitLevel/m))])
+		split.values[q] = critical
+		if n < fewest {
+			continue
+		}
+		// What parting and ESD test leave of the level of one of m quantities.
+		left := float64(runs) * (1 - math.Pow(1-totalLevel, 1/m))
+		var rest []float64
+		for r := range runs {
+			if c.score[r] > critical || c.esd[q][r] {
+				left--
+			} else {
+				rest = append(rest, c.farthest[r])
+			}
+		}
+		if left < 20 {
+			panic(fmt.Sprintf("n %d, %d quantities: %v lots left for the limit", n, q+1, left))
+		}
+		slices.Sort(rest)
+		limit.values[q] = rest[len(rest)-int(left)]
+	}
+	return split, limit
+}
+
+func allTables() (split, limit []sizeRow) {
+	split, limit = make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes))
+	var wg sync.WaitGroup
+	next := make(chan int)
+	for range 2 {
+		wg.Go(func() {
+			for i := range next {
+				split[i], limit[i] = tableRows(sizes[i], runsFor(sizes[i]))
+			}
+		})
+	}
+	for i := len(sizes) - 1; i >= 0; i-- {
+		next <- i
+	}
+	close(next)
+	wg.Wait()
+	first := slices.Index(sizes, fewest)
+	return split, limit[first:]
+}
+
+func goRows(name, doc string, rows []sizeRow) string {
+	var b strings.Builder
+	fmt.Fprintf(&b, "\n%s\nvar %s = []sizeRow{\n", doc, name)
+	for _, r := range rows {
+		fmt.Fprintf(&b, "\t{%d, [mostQuantities]float64{", r.n)
+		for q, v := range r.values {
+			if q > 0 {
+				b.WriteString(", ")
+			}
+			fmt.Fprintf(&b, "%.2f", v)
+		}
+		b.WriteString("}},\n")
+	}
+	b.WriteString("}\n")
+	return b.String()
+}
+
+func TestLongTables(t *testing.T) {
+	mode := long(t)
+	split, limit := allTables()
+	text := "// Made by TestLongTables with GATESILL_LONG=write; do not edit.\n\npackage lot\n" +
+		goRows("splitTable", "// splitTable holds critical scores of the parting: number of devices, and for 1 to 6\n// quantities the score that normal lots exceed in 0.4 % of lots.", split) +
+		goRows("limitTable", "// limitTable holds default limits in robust spreads: number of devices, and for 1 to\n// 6 quantities the limit with which 1.9 % of normal lots get any false alarm.", limit)
+	if mode == "write" {
+		if err := os.WriteFile("tables.go", []byte(text), 0o644); err != nil {
+			t.Fatal(err)
+		}
+		return
+	}
+	have, err := os.ReadFile("tables.go")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if string(have) != text {
+		t.Errorf("tables.go differs from a fresh simulation:\n%s", text)
+	}
+}

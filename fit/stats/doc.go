@@ -1,0 +1,9 @@
+// Package stats holds the estimators and tests that the numerical library
+// lacks: accurate moments, order statistics with a named quantile rule, and
+// tests for single outliers.
+//
+// It is general: it knows nothing of transistors or lots. It never changes the
+// slices it is given, never panics on data, and says NaN where there are too
+// few values for a number. It draws no conclusion: a caller who wants to leave
+// a value out has to say why.
+package stats
