@@ -27,7 +27,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	p.grid(binGrid(srt, style))
 	p.line("")
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {
-		p.line("A bin narrower than %s would sort noise (4 standard uncertainties of a device).", FormatPlain(srt.SmallestWidth, srt.SmallestWidth, unit))
+		p.line("A bin narrower than %s would sort noise (4 standard uncertainties of a device).", twoDigits(srt.SmallestWidth, unit))
 	} else {
 		wrapped(p, "", "", "How narrow a bin may be is not known: no uncertainty of the readings is known.", style.Width)
 	}
@@ -48,6 +48,12 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 		}
 	}
 	return p.err
+}
+
+// twoDigits writes x with two significant digits and its unit.
+func twoDigits(x float64, unit string) string {
+	sc := ScaleOf(unit, x)
+	return withUnit(sc.FormatNumber(x, x, 0), sc.Unit(unit))
 }
 
 // unsorted lists the devices in no bin, in the order of the lot: those that the

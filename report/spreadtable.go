@@ -126,7 +126,7 @@ func limitGrid(s Sheet, style Style) grid {
 	return grid{style: style, cols: []column{
 		{head: "flagged outside", cells: names}, {head: "unit", cells: units},
 		{head: "low", cells: lows, right: true}, {head: "high", cells: highs, right: true},
-		{head: "robust sd", cells: ks, right: true}, {head: "basis", cells: bases},
+		{head: "× robust sd", cells: ks, right: true}, {head: "basis", cells: bases},
 	}}
 }
 
