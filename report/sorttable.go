@@ -22,7 +22,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	p := &printer{w: w}
 	srt := s.Sorting
 	unit := KeyOf(srt.By).Unit
-	p.line("%s", s.sortedLine(srt.By))
+	p.line("%s", s.SortedPhrase(srt.By))
 	p.line("")
 	p.grid(binGrid(srt, style))
 	p.line("")
@@ -40,7 +40,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	} else {
 		p.line("No device is in a bin.")
 	}
-	if left := s.unsorted(); len(left) > 0 {
+	if left := s.Unsorted(); len(left) > 0 {
 		p.line("")
 		p.line("%s", style.paint(fmt.Sprintf("In no bin: %d", len(left)), bold))
 		for _, u := range left {
@@ -56,9 +56,9 @@ func twoDigits(x float64, unit string) string {
 	return withUnit(sc.FormatNumber(x, x, 0), sc.Unit(unit))
 }
 
-// unsorted lists the devices in no bin, in the order of the lot: those that the
+// Unsorted lists the devices in no bin, in the order of the lot: those that the
 // sorting names and those that it never saw, such as excluded ones.
-func (s *Sheet) unsorted() []lot.Unsorted {
+func (s *Sheet) Unsorted() []lot.Unsorted {
 	why := map[string]string{}
 	for _, u := range s.Sorting.Unsorted {
 		why[u.Name] = u.Why

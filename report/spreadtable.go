@@ -20,7 +20,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	if by == "" {
 		by = s.SortedBy
 	}
-	p.line("%s", s.sortedLine(by))
+	p.line("%s", s.SortedPhrase(by))
 	keys := spreadKeys(s.Spread)
 	if len(keys) == 0 {
 		p.line("No device of the lot has a value: there is no spread to show.")

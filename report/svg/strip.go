@@ -14,6 +14,7 @@ type Spot struct {
 	Name string
 	X    float64 // value of the quantity, base unit
 	Flag string  // why it is flagged, in a few words; "" when it is not
+	Ref  int     // as of [Curve]
 }
 
 // Bin is one bin on a strip plot: Low <= value < High.
@@ -296,7 +297,9 @@ func (s *strip) dots() {
 			continue
 		}
 		x, y := at(i)
-		s.raw(`<path d="M`)
+		s.raw(`<path`)
+		s.ref(p.Ref)
+		s.raw(` d="M`)
 		s.num(x)
 		s.raw(" ")
 		s.num(y)
@@ -325,6 +328,7 @@ func (s *strip) flagged(at func(int) (float64, float64), size float64) {
 		x, y := at(i)
 		r := size * 0.62
 		s.raw(`<path class="flag"`)
+		s.ref(p.Ref)
 		if k < s.f.Focus {
 			s.raw(` tabindex="0" role="img" aria-label="`)
 			s.words(p.Name + ", flagged: " + p.Flag)

@@ -112,6 +112,15 @@ func (c *canvas) attr(name string, x float64) {
 	c.raw(`"`)
 }
 
+// ref writes the reference of a device, if it has one.
+func (c *canvas) ref(n int) {
+	if n > 0 {
+		c.raw(` data-d="`)
+		c.b = strconv.AppendInt(c.b, int64(n), 10)
+		c.raw(`"`)
+	}
+}
+
 // words writes text as character data: escaped, and with nothing in it that
 // would not show.
 func (c *canvas) words(s string) { c.b = appendText(c.b, s) }

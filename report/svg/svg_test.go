@@ -259,7 +259,7 @@ func FuzzNames(f *testing.F) {
 			picture, _ := AppendTransfer(nil, curves, TransferOptions{Frame: Frame{ID: name, Title: flag, Focus: 1}, Axis: axis})
 			read(t, picture)
 		}
-		picture, _ := AppendStrip(nil, []Spot{{name, x, flag}, {flag, y, ""}}, StripOptions{Quantity: flag, Unit: "V", Bins: []Bin{{name, x, y}}, Median: x, Low: y, High: x, Above: []string{name}})
+		picture, _ := AppendStrip(nil, []Spot{{Name: name, X: x, Flag: flag, Ref: 1}, {Name: flag, X: y}}, StripOptions{Quantity: flag, Unit: "V", Bins: []Bin{{name, x, y}}, Median: x, Low: y, High: x, Above: []string{name}})
 		read(t, picture)
 	})
 }

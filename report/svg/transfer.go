@@ -16,6 +16,7 @@ type Curve struct {
 	Y    []float64 // A, drain current with its sign
 	Flag string    // why it is flagged, in a few words; "" when it is not
 	Out  []int     // ascending: points that the fit left out; shown as crosses, not joined
+	Ref  int       // above 0: written as data-d, by which a page finds what belongs together
 }
 
 // Level is a current to mark across the picture.
@@ -160,7 +161,12 @@ func (t *transfer) ranges() {
 		lo, hi, pos = min(lo, flagged.lo), max(hi, flagged.hi), min(pos, flagged.pos)
 	} else {
 		hi = max(hi, min(flagged.hi, 2*hi))
-		lo = min(lo, max(flagged.lo, -0.25*hi))
+		// Below zero the square-root axis spreads what is least of interest.
+		room := 0.25
+		if t.o.Axis == SquareRoot {
+			room = 0.01
+		}
+		lo = min(lo, max(flagged.lo, -room*hi))
 		pos = min(pos, flagged.pos)
 	}
 	xlo, xhi := widen(x.lo, x.hi)
@@ -308,8 +314,10 @@ func strokes(n int) (width, opacity float64) {
 		return 1.4, 0.6
 	case n <= 250:
 		return 1.1, 0.42
+	case n <= 600:
+		return 0.9, 0.25
 	}
-	return 0.9, 0.3
+	return 0.8, 0.15
 }
 
 // dashes tells flagged curves apart from the others and, a little, from each
@@ -333,7 +341,9 @@ func (t *transfer) lines(flagged int) {
 	t.raw(`<g stroke-width="`, strconv.FormatFloat(width*fine, 'g', 4, 64), `" stroke-opacity="`, strconv.FormatFloat(opacity, 'g', 3, 64), `">`)
 	for i := range t.curves {
 		if cv := &t.curves[i]; cv.Flag == "" && t.path(cv) {
-			t.raw(`<path d="`)
+			t.raw(`<path`)
+			t.ref(cv.Ref)
+			t.raw(` d="`)
 			t.b = appendPath(t.b, t.points, t.keep)
 			t.raw(`"><title>`)
 			t.words(cv.Name)
@@ -363,6 +373,7 @@ func (t *transfer) flaggedLines(width float64) {
 			continue
 		}
 		t.raw(`<path class="flag" stroke-dasharray="`, dashes[k%len(dashes)], `"`)
+		t.ref(cv.Ref)
 		if k < t.f.Focus {
 			t.raw(` tabindex="0" role="img" aria-label="`)
 			t.words(cv.Name + ", flagged: " + cv.Flag)
