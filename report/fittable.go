@@ -47,9 +47,9 @@ func FitTable(w io.Writer, s Sheet, style Style) error {
 	p.line("")
 	dropped := p.grid(fitGrid(s, style))
 	p.line("")
-	p.line("± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.")
+	wrapped(p, "", "  ", "± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.", style.Width)
 	if len(dropped) > 0 {
-		p.line("No room for: %s. A wider terminal or --json shows them.", strings.Join(dropped, ", "))
+		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	notMeasured(p, s, style)
 	remarks(p, s, style)

@@ -27,7 +27,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	p.grid(binGrid(srt, style))
 	p.line("")
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {
-		p.line("A bin narrower than %s would sort noise (4 standard uncertainties of a device).", twoDigits(srt.SmallestWidth, unit))
+		wrapped(p, "", "  ", "A bin narrower than "+twoDigits(srt.SmallestWidth, unit)+" would sort noise (4 standard uncertainties of a device).", style.Width)
 	} else {
 		wrapped(p, "", "", "How narrow a bin may be is not known: no uncertainty of the readings is known.", style.Width)
 	}

@@ -36,7 +36,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	}
 	p.line("")
 	if len(dropped) > 0 {
-		p.line("No room for: %s. A wider terminal or --json shows them.", strings.Join(dropped, ", "))
+		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	if s.Spread.Estimator != "" {
 		wrapped(p, "", "", "Robust sd: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
