@@ -315,7 +315,7 @@ func WriteJSON(w io.Writer, s Sheet) error {
 		sorting = &sortingDoc{string(s.Sorting.By), number(s.Sorting.SmallestWidth), binDocs(s.Sorting), unsortedDocs(&s), append([]fit.Warning{}, s.Sorting.Warnings...)}
 	}
 	return writeObject(w,
-		member{"schema", Schema}, member{"lot", lotDocOf(s.Lot)}, member{"part", partDocOf(s.Part)},
+		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"about_lot", lotDocOf(s.Lot)}, member{"part", partDocOf(s.Part)},
 		member{"sorted_by", optional(s.SortedBy)}, member{"test_current_A", number(s.TestCurrent)},
 		member{"test_current_from", optional(s.TestBasis)}, member{"idle_current_A", number(s.IdleCurrent)},
 		member{"sources", sources}, member{"sessions", sessions}, member{"devices", devices},
@@ -347,7 +347,7 @@ func lotRowDocOf(r LotRow) lotRowDoc {
 
 // LotJSON writes one lot with its part.
 func LotJSON(w io.Writer, r LotRow) error {
-	return writeObject(w, member{"schema", Schema}, member{"lot", r.Lot.Name}, member{"facts", lotRowDocOf(r)})
+	return writeObject(w, member{"schema", Schema}, member{"lot", r.Lot.Name}, member{"about_lot", lotRowDocOf(r)})
 }
 
 type changeDoc struct {

@@ -47,9 +47,9 @@ func FitTable(w io.Writer, s Sheet, style Style) error {
 	p.line("")
 	dropped := p.grid(fitGrid(s, style))
 	p.line("")
-	p.line("± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.")
+	wrapped(p, "", "  ", "± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.", style.Width)
 	if len(dropped) > 0 {
-		p.line("No room for: %s. A wider terminal or --json shows them.", strings.Join(dropped, ", "))
+		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	notMeasured(p, s, style)
 	remarks(p, s, style)
@@ -154,18 +154,16 @@ func notMeasured(p *printer, s Sheet, style Style) {
 	}
 }
 
-// commonCodes lists the warning codes that every device with a sweep carries:
-// they are said once.
+// commonCodes lists the warning codes that every measured device carries: they
+// are said once.
 func commonCodes(s Sheet) []string {
 	seen, devices := map[string]int{}, 0
 	for i := range s.Devices {
-		d := &s.Devices[i]
-		if len(d.Sweeps) == 0 && len(d.Result.Warnings) == 0 {
-			continue
-		}
-		devices++
-		for _, code := range deviceCodes(d) {
-			seen[code]++
+		if d := &s.Devices[i]; d.State() == fit.Measured {
+			devices++
+			for _, code := range deviceCodes(d) {
+				seen[code]++
+			}
 		}
 	}
 	var common []string
@@ -195,7 +193,7 @@ type RemarkGroup struct {
 	Meaning string // of the code, or the text itself when all devices share one
 	Next    string // what to do next; ""
 	Devices []string
-	All     bool // every device with a sweep carries it
+	All     bool // every measured device carries it
 }
 
 // RemarkGroups gathers the warnings of the devices by code, in order of the
@@ -242,7 +240,7 @@ func remarks(p *printer, s Sheet, style Style) {
 	for _, g := range groups {
 		who := namesWords(g.Devices, 8)
 		if g.All {
-			who = "every device"
+			who = "every measured device"
 		}
 		head := fmt.Sprintf("%s (%s)", Clean(g.Code), who)
 		if g.Meaning != "" {

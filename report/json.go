@@ -344,7 +344,7 @@ func binDocs(srt *lot.Sorting) []binDoc {
 
 func unsortedDocs(s *Sheet) []unsortedDoc {
 	docs := []unsortedDoc{}
-	for _, u := range s.unsorted() {
+	for _, u := range s.Unsorted() {
 		docs = append(docs, unsortedDoc{u.Name, u.Why})
 	}
 	return docs

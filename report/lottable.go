@@ -258,8 +258,8 @@ func sweepGrid(d *Device, style Style) grid {
 		{head: "measured", cells: when}, {head: "direction", cells: dirs}, {head: "points", cells: points, right: true}, {head: "state", cells: states},
 	}}
 	g.cols = append(g.cols, quantityColumns(results, fit.KeyVgsth, 1, absent)...)
-	g.cols = append(g.cols, quantityColumns(results, fit.KeyVgsIdle, 1, absent)...)
-	g.cols = append(g.cols, quantityColumns(results, fit.KeyVt, 3, absent)...)
-	g.cols = append(g.cols, column{head: "file", cells: files, rank: 2}, column{head: "conditions", cells: conds, rank: 4, wrap: 24})
+	g.cols = append(g.cols, quantityColumns(results, fit.KeyVgsIdle, 3, absent)...)
+	g.cols = append(g.cols, quantityColumns(results, fit.KeyVt, 4, absent)...)
+	g.cols = append(g.cols, column{head: "file", cells: files, rank: 2}, column{head: "conditions", cells: conds, rank: 5, wrap: 24})
 	return g
 }

@@ -171,7 +171,11 @@ func FormatPlain(x, u float64, unit string) string {
 	if math.IsNaN(x) || math.IsInf(x, 0) {
 		return NotAvailable
 	}
-	s := ScaleOf(unit, x)
+	size := math.Abs(x)
+	if u > size && isNumber(u) {
+		size = u // a value lost in its uncertainty is shown on the scale of that
+	}
+	s := ScaleOf(unit, size)
 	text := s.FormatNumber(x, u, 0)
 	if d, ok := DecimalsFor(s.Of(u)); ok {
 		d = min(d, max(0, significant(s.Of(x), maxDigits)))

@@ -22,12 +22,12 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	p := &printer{w: w}
 	srt := s.Sorting
 	unit := KeyOf(srt.By).Unit
-	p.line("%s", s.sortedLine(srt.By))
+	p.line("%s", s.SortedPhrase(srt.By))
 	p.line("")
 	p.grid(binGrid(srt, style))
 	p.line("")
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {
-		p.line("A bin narrower than %s would sort noise (4 standard uncertainties of a device).", FormatPlain(srt.SmallestWidth, srt.SmallestWidth, unit))
+		wrapped(p, "", "  ", "A bin narrower than "+twoDigits(srt.SmallestWidth, unit)+" would sort noise (4 standard uncertainties of a device).", style.Width)
 	} else {
 		wrapped(p, "", "", "How narrow a bin may be is not known: no uncertainty of the readings is known.", style.Width)
 	}
@@ -40,7 +40,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	} else {
 		p.line("No device is in a bin.")
 	}
-	if left := s.unsorted(); len(left) > 0 {
+	if left := s.Unsorted(); len(left) > 0 {
 		p.line("")
 		p.line("%s", style.paint(fmt.Sprintf("In no bin: %d", len(left)), bold))
 		for _, u := range left {
@@ -50,9 +50,15 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	return p.err
 }
 
-// unsorted lists the devices in no bin, in the order of the lot: those that the
+// twoDigits writes x with two significant digits and its unit.
+func twoDigits(x float64, unit string) string {
+	sc := ScaleOf(unit, x)
+	return withUnit(sc.FormatNumber(x, x, 0), sc.Unit(unit))
+}
+
+// Unsorted lists the devices in no bin, in the order of the lot: those that the
 // sorting names and those that it never saw, such as excluded ones.
-func (s *Sheet) unsorted() []lot.Unsorted {
+func (s *Sheet) Unsorted() []lot.Unsorted {
 	why := map[string]string{}
 	for _, u := range s.Sorting.Unsorted {
 		why[u.Name] = u.Why

@@ -20,7 +20,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	if by == "" {
 		by = s.SortedBy
 	}
-	p.line("%s", s.sortedLine(by))
+	p.line("%s", s.SortedPhrase(by))
 	keys := spreadKeys(s.Spread)
 	if len(keys) == 0 {
 		p.line("No device of the lot has a value: there is no spread to show.")
@@ -36,7 +36,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	}
 	p.line("")
 	if len(dropped) > 0 {
-		p.line("No room for: %s. A wider terminal or --json shows them.", strings.Join(dropped, ", "))
+		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	if s.Spread.Estimator != "" {
 		wrapped(p, "", "", "Robust sd: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
@@ -126,7 +126,7 @@ func limitGrid(s Sheet, style Style) grid {
 	return grid{style: style, cols: []column{
 		{head: "flagged outside", cells: names}, {head: "unit", cells: units},
 		{head: "low", cells: lows, right: true}, {head: "high", cells: highs, right: true},
-		{head: "robust sd", cells: ks, right: true}, {head: "basis", cells: bases},
+		{head: "× robust sd", cells: ks, right: true}, {head: "basis", cells: bases},
 	}}
 }
 

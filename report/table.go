@@ -90,7 +90,7 @@ func (g *grid) fitWidth() (dropped []string) {
 		for _, c := range g.cols {
 			if c.rank != worst {
 				kept = append(kept, c)
-			} else if c.head != "n" {
+			} else if c.head != "n" && c.head != "V_T by" {
 				dropped = append(dropped, c.head)
 			}
 		}
@@ -158,7 +158,6 @@ var plain = table.Style{
 	Box: table.BoxStyle{
 		MiddleHorizontal: "-", MiddleSeparator: strings.Repeat(" ", gap), MiddleVertical: strings.Repeat(" ", gap),
 	},
-	Format:  table.FormatOptions{Direction: text.LeftToRight},
 	Options: table.Options{SeparateColumns: true, SeparateHeader: true},
 }
 

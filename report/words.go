@@ -126,9 +126,11 @@ func of(current float64) string {
 
 // SortedLine is the first line of every output about a lot: the quantity that
 // sorting uses and where its current comes from.
-func (s *Sheet) SortedLine() string { return s.sortedLine(s.SortedBy) }
+func (s *Sheet) SortedLine() string { return s.SortedPhrase(s.SortedBy) }
 
-func (s *Sheet) sortedLine(by fit.Key) string {
+// SortedPhrase says that by is the quantity sorted by, and where its current
+// comes from.
+func (s *Sheet) SortedPhrase(by fit.Key) string {
 	text := "Sorted by " + s.KeyPhrase(by)
 	if from := s.currentFrom(by); from != "" {
 		text += " (" + from + ")"
