@@ -1,6 +1,7 @@
 package table
 
 import (
+	"strings"
 	"testing"
 
 	"gatesill/store/record"
@@ -183,6 +184,7 @@ func TestLoadOrDrain(t *testing.T) {
 	wantError(t, "x.csv", still, Options{}, ErrAmbiguous, "across R_L (vl) or at the drain (vd)", "--map vl=4 or --map vd=4")
 	checkShow(t, mustRead(t, "x.csv", still, Options{Map: map[string]string{"vd": "4"}}), "D1 up vg_v[2,3,4] id_a[0,0,0] vd_v[12.0,12.0,12.0]")
 	checkShow(t, mustRead(t, "x.csv", still, Options{Map: map[string]string{"vl": "U_L (V)"}}), "D1 up vg_v[2,3,4] id_a[0,0,0] vl_v[12.0,12.0,12.0]")
+	checkShow(t, mustRead(t, "x.csv", strings.Replace(still, "U_L (V)", "vl_V", 1), Options{}), "D1 up vg_v[2,3,4] id_a[0,0,0] vl_v[12.0,12.0,12.0]")
 	// A column headed V_DS is the drain voltage whatever it does.
 	checkShow(t, mustRead(t, "x.csv", "device,vg_V,id_A,V_DS (V)\nD1,2,0,1\nD1,3,0,2\nD1,4,1,3\n", Options{}), "D1 up vg_v[2,3,4] id_a[0,0,1] vd_v[1,2,3]")
 }

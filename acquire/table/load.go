@@ -41,6 +41,8 @@ func (r *reader) settleLoad() error {
 		as, why = "vl", "it rises with the current"
 	case fall > 0.01 && fall > 10*rise:
 		as, why = "vd", "it falls when the current rises"
+	case c.name == "vl": // our own name for it, and the readings do not object
+		as, why = "vl", "it is named so"
 	default:
 		n := c.index + 1
 		text := fmt.Sprintf("column %s may be the voltage across R_L (vl) or at the drain (vd), and it does not tell by rising or falling with the current", c.title())

@@ -73,6 +73,7 @@ type longReader struct {
 	w        *rows
 	fields   []field
 	who      []*column // device, lot, package, side; nil where there is none
+	only     *column   // the one of them, when there is but one
 	sweep    *column
 	width    int // cells that a row must have
 	builders []*builder
@@ -89,6 +90,9 @@ func (r *reader) readLong() ([]*builder, error) {
 	l := &longReader{r: r, w: r.rowsOfData(), fields: fields(r.numberColumns()), byKey: map[string]*builder{}, device: r.talkDevice}
 	for _, role := range []Role{RoleDevice, RoleLot, RolePackage, RoleSide} {
 		l.who = append(l.who, r.first(string(role)))
+	}
+	if l.who[1] == nil && l.who[2] == nil && l.who[3] == nil {
+		l.only = l.who[0]
 	}
 	l.sweep = r.first(string(RoleSweep))
 	for _, f := range l.fields {
@@ -161,6 +165,11 @@ func (l *longReader) point(b *builder) {
 // builder finds the device of the row. Most rows are of the same device as the
 // one before, so that is looked at first.
 func (l *longReader) builder() *builder {
+	if l.only != nil && l.last != nil {
+		if cell := l.w.cells[l.only.index]; len(cell)+1 == len(l.raw) && string(cell) == string(l.raw[:len(cell)]) {
+			return l.last
+		}
+	}
 	n := len(l.raw)
 	for _, c := range l.who {
 		if c != nil {
@@ -271,7 +280,7 @@ func (l *longReader) talk(line int, row []byte) {
 	if l.r.layout != layoutPerDevice || l.who[0] != nil {
 		return
 	}
-	if name := talkDevice(string(row[:min(len(row), maxTalk)])); name != "" && name != l.device {
+	if name, _ := talkDevice(string(row[:min(len(row), maxTalk)])); name != "" && name != l.device {
 		l.device, l.last = name, nil
 	} else if name != "" && l.last != nil {
 		l.breakAt(l.last)
