@@ -293,6 +293,9 @@ func (r *reader) settleBehaviour() {
 		switch {
 		case c.role == "id" && fold(c.text) == "id" && !device && (c.texts > c.numbers || spots && !c.hasUnit):
 			c.role, c.rank = string(RoleDevice), sure // ID: the identifier, not the drain current
+		case c.hasUnit && (c.unit.dim == "K" || c.unit.dim == "degF" || c.unit.dim == "min") && (c.role == "temp" || c.role == "t") && c.how == "" && !r.isGiven(c.role):
+			c.as, c.how, c.role = string(RoleIgnore), "header", ""
+			r.remark(CodeColumnNotUsed, "column %s is not used: %s is not read, only °C and seconds are", c.title(), c.unit.text)
 		case c.role == roleTime && !c.numeric():
 			c.role = string(RoleDate)
 		case c.role == roleTime:
@@ -341,13 +344,35 @@ func (r *reader) takeHeaders(claimed map[string]bool) error {
 		if role == string(RoleDevice) {
 			best = r.pickDevice(list, best)
 		}
-		if len(best) > 1 && quantities[role] != "" {
-			return r.ambiguous(r.headerLine, fmt.Sprintf("--map %s=%d or --map %s=%d", role, best[0].index+1, role, best[1].index+1),
-				"columns %s and %s both look like %s", best[0].title(), best[1].title(), role)
-		}
 		best[0].as, best[0].how = role, "header"
+		if len(best) > 1 && quantities[role] != "" {
+			c, err := r.askColumn(role, best, fmt.Sprintf("columns %s and %s both look like %s", best[0].title(), best[1].title(), role))
+			if err != nil {
+				return err
+			}
+			best[0].as, best[0].how = "", ""
+			c.as, c.how = role, "asked"
+		}
 	}
 	return nil
+}
+
+// askColumn asks which of several columns holds a quantity.
+func (r *reader) askColumn(role string, list []*column, text string) (*column, error) {
+	q := Question{Text: text, Flag: "--map " + role + "="}
+	var flags []string
+	for _, c := range list {
+		n := strconv.Itoa(c.index + 1)
+		q.Choices = append(q.Choices, n)
+		if len(flags) < 3 {
+			flags = append(flags, "--map "+role+"="+n)
+		}
+	}
+	answer, err := r.ask(q, r.headerLine, strings.Join(flags, " or "))
+	if err != nil {
+		return nil, err
+	}
+	return list[slices.Index(q.Choices, answer)], nil
 }
 
 // isClaimed reports whether the role of the column is taken by a flag. A load
@@ -413,7 +438,7 @@ func (r *reader) pickDevice(all, best []*column) []*column {
 	pick := best[0]
 	if len(pick.distinct) == 1 {
 		for _, c := range all {
-			if len(c.distinct) > 1 && !(c.counting && r.has("id")) {
+			if len(c.distinct) > 1 && !(c.counting && (r.has("id") || r.has("vl") || r.has("vd") || r.has(roleLoad))) {
 				pick = c
 				r.note("column %s names the device: %s is the same in every row", c.title(), best[0].title())
 				break

@@ -22,9 +22,14 @@ func (r *reader) describe() {
 			d.Comments++
 		}
 	}
-	left := 0
+	left, unused := 0, 0
 	for j := range r.cols {
 		c := &r.cols[j]
+		if c.as == "" && c.numbers > 0 && c.text != "" {
+			if unused++; unused <= keptRows {
+				r.note("column %s is not used", c.title())
+			}
+		}
 		if len(d.Columns) == maxListed {
 			left++
 			continue
@@ -32,9 +37,6 @@ func (r *reader) describe() {
 		as, how := c.as, c.how
 		if as == "" {
 			as, how = string(RoleIgnore), "header"
-			if c.numbers > 0 && c.text != "" {
-				r.note("column %s is not used", c.title())
-			}
 		}
 		found := ColumnFound{Number: c.index + 1, Header: cut(c.text, 80), As: as, How: how}
 		switch {
@@ -48,6 +50,9 @@ func (r *reader) describe() {
 	}
 	if left > 0 {
 		r.note("%d more columns like the last one listed", left)
+	}
+	if unused > keptRows {
+		r.note("%d more columns are not used", unused-keptRows)
 	}
 	r.checkEnd()
 }

@@ -2,6 +2,7 @@ package table
 
 import (
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 	"unicode/utf8"
@@ -32,9 +33,9 @@ func (r *reader) ambiguous(line int, hint, format string, args ...any) *Error {
 	return &Error{File: r.place, Line: line, Hint: hint, Err: fmt.Errorf("%w: %s", ErrAmbiguous, fmt.Sprintf(format, args...))}
 }
 
-// ask puts a question when somebody can answer, and returns the choice. The
-// error is ambiguous with the hint when nobody can, or when the answer is none
-// of the choices.
+// ask puts a question when somebody can answer, and returns the choice, or any
+// answer to a question without choices. The error is ambiguous with the hint
+// when nobody can answer, or when the answer is none of the choices.
 func (r *reader) ask(q Question, line int, hint string) (string, error) {
 	if r.opt.Ask == nil {
 		return "", r.ambiguous(line, hint, "%s", q.Text)
@@ -43,10 +44,8 @@ func (r *reader) ask(q Question, line int, hint string) (string, error) {
 	if err != nil {
 		return "", r.ambiguous(line, hint, "%s (%v)", q.Text, err)
 	}
-	for _, c := range q.Choices {
-		if c == answer {
-			return answer, nil
-		}
+	if len(q.Choices) == 0 || slices.Contains(q.Choices, answer) {
+		return answer, nil
 	}
 	return "", r.ambiguous(line, hint, "%s (answer %q is none of the choices)", q.Text, answer)
 }

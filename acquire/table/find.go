@@ -2,6 +2,7 @@ package table
 
 import (
 	"bytes"
+	"regexp"
 	"slices"
 	"strings"
 )
@@ -40,10 +41,14 @@ func (r *reader) findHeader() error {
 		first = at + 1
 	}
 	if at >= 0 {
+		plain[at].cells = r.headerCells(plain[at], len(usual))
 		r.setHeader(plain[at])
 	}
 	if r.headerLine > 0 && first < len(plain) && isUnitLine(plain[first].cells) {
-		r.unitLine, r.unitCells = plain[first].line, texts(plain[first].cells)
+		if r.delim != ' ' || len(plain[first].cells) == len(r.headings) { // blanks hide an empty cell
+			r.unitCells = texts(plain[first].cells)
+		}
+		r.unitLine = plain[first].line
 		first++
 	}
 	above := at
@@ -66,6 +71,37 @@ func (r *reader) findHeader() error {
 	slices.SortStableFunc(r.talk, func(a, b remarkLine) int { return a.line - b.line })
 	return nil
 }
+
+// headerCells gives the cells of a header in a file cut at blanks, where blanks
+// stand inside the header names too: the row is cut at tabs and wider gaps, or a
+// unit in brackets is joined to the name before it, when that makes as many
+// cells as the rows have.
+func (r *reader) headerCells(s sampled, width int) [][]byte {
+	if r.delim != ' ' || len(s.cells) <= width {
+		return s.cells
+	}
+	if wide := gaps.Split(string(bytes.TrimSpace(s.row)), -1); len(wide) == width {
+		cells := make([][]byte, width)
+		for i, c := range wide {
+			cells[i] = []byte(c)
+		}
+		return cells
+	}
+	var joined [][]byte
+	for _, c := range s.cells {
+		if n := len(joined); n > 0 && bytes.IndexByte([]byte("([{"), c[0]) >= 0 {
+			joined[n-1] = append(append(slices.Clone(joined[n-1]), ' '), c...)
+			continue
+		}
+		joined = append(joined, c)
+	}
+	if len(joined) == width {
+		return joined
+	}
+	return s.cells
+}
+
+var gaps = regexp.MustCompile(`\t[ \t]*| [ \t]+`)
 
 func (r *reader) setHeader(s sampled) {
 	r.headerLine, r.headerRow = s.line, s.row
@@ -252,7 +288,9 @@ func (r *reader) commentedHeader(rows, plain []sampled, first, width int) bool {
 			continue
 		}
 		split.split()
-		head := sampled{line: s.line, row: s.row, cells: append([][]byte(nil), split.cells...)}
+		head := sampled{line: s.line, row: split.row, cells: slices.Clone(split.cells)}
+		head.cells = r.headerCells(head, width)
+		head.row = s.row
 		if len(head.cells) == width-1 && string(mark) == "#" { // "# ; Vgs" or, in blanks, a column headed #
 			head.cells = append([][]byte{[]byte("#")}, head.cells...)
 		} else if len(head.cells) == width && len(trim(head.cells[0])) == 0 {

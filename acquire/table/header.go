@@ -68,6 +68,12 @@ func readHeading(text string) heading {
 		}
 		h.settleUnit()
 	}
+	if before, _, ok := strings.Cut(t, "@"); ok && h.role == "" { // Id (A) @ Vds = 10 V
+		if name, u, ok := splitUnit(before); h.named(name) {
+			h.name, h.unit, h.hasUnit = name, u, ok
+			h.settleUnit()
+		}
+	}
 	return h
 }
 

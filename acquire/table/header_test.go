@@ -1,6 +1,7 @@
 package table
 
 import (
+	"strings"
 	"testing"
 
 	"gatesill/store/record"
@@ -16,7 +17,7 @@ func TestHeadings(t *testing.T) {
 		{"Id", "id", ""}, {"I_D", "id", ""}, {"IDS", "id", ""}, {"Idrain", "id", ""}, {"Drain Current [mA]", "id", "mA"}, {"Drainstrom in µA", "id", "µA"}, {"courant de drain", "id", ""},
 		{"Id (mA)", "id", "mA"}, {"Id [mA]", "id", "mA"}, {"Id{mA}", "id", "mA"}, {"Id/mA", "id", "mA"}, {"Id / mA", "id", "mA"}, {"id_mA", "id", "mA"}, {"Id in mA", "id", "mA"}, {"Id, mA", "id", "mA"},
 		{"Id mA", "id", "mA"}, {"id_ma", "id", "mA"}, {"ID_UA", "id", "µA"}, {"id_a", "id", "A"}, {"Id (uA)", "id", "µA"}, {"Id [\u03bcA]", "id", "µA"}, {"Id [\u00b5A]", "id", "µA"}, {"Id (nA)", "id", "nA"},
-		{"I_D (Ampere)", "id", "A"}, {"drain (mA)", "id", "mA"}, {"corriente de drenador (mA)", "id", "mA"}, {"Prąd drenu", "id", ""},
+		{"I_D (Ampere)", "id", "A"}, {"drain (mA)", "id", "mA"}, {"Id(A) @ Vds = 10 V", "id", "A"}, {"corriente de drenador (mA)", "id", "mA"}, {"Prąd drenu", "id", ""},
 		// Load and drain voltage, supply.
 		{"V_load", roleLoad, ""}, {"U_L", roleLoad, ""}, {"VL (V)", roleLoad, "V"}, {"Vout", roleLoad, ""}, {"Lastspannung [V]", roleLoad, "V"}, {"tension de charge", roleLoad, ""}, {"Load (mA)", "id", "mA"},
 		{"V_RL", "vl", ""}, {"Vds", "vd", ""}, {"U_DS", "vd", ""}, {"V_D (V)", "vd", "V"}, {"Vdrain", "vd", ""}, {"drain (V)", "vd", "V"}, {"Drain-Source-Spannung", "vd", ""},
@@ -180,9 +181,31 @@ func TestLoadOrDrain(t *testing.T) {
 		Options{Given: record.Condition{Circuit: record.Diode}}), "D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3] vd_v[2.5,3.5,4.5]")
 	// It stands still: a flag must tell.
 	still := "device,vg_V,id_A,U_L (V)\nD1,2,0,12.0\nD1,3,0,12.0\nD1,4,0,12.0\n"
-	wantError(t, "x.csv", still, Options{}, ErrAmbiguous, "across R_L or at the drain", "--map vl=4 or --map vd=4")
+	wantError(t, "x.csv", still, Options{}, ErrAmbiguous, "across R_L (vl) or at the drain (vd)", "--map vl=4 or --map vd=4")
 	checkShow(t, mustRead(t, "x.csv", still, Options{Map: map[string]string{"vd": "4"}}), "D1 up vg_v[2,3,4] id_a[0,0,0] vd_v[12.0,12.0,12.0]")
 	checkShow(t, mustRead(t, "x.csv", still, Options{Map: map[string]string{"vl": "U_L (V)"}}), "D1 up vg_v[2,3,4] id_a[0,0,0] vl_v[12.0,12.0,12.0]")
+	checkShow(t, mustRead(t, "x.csv", strings.Replace(still, "U_L (V)", "vl_V", 1), Options{}), "D1 up vg_v[2,3,4] id_a[0,0,0] vl_v[12.0,12.0,12.0]")
 	// A column headed V_DS is the drain voltage whatever it does.
 	checkShow(t, mustRead(t, "x.csv", "device,vg_V,id_A,V_DS (V)\nD1,2,0,1\nD1,3,0,2\nD1,4,1,3\n", Options{}), "D1 up vg_v[2,3,4] id_a[0,0,1] vd_v[1,2,3]")
+}
+
+func TestColumnsThatGiveWay(t *testing.T) {
+	// The set voltage yields to the measured one, and serves where it is alone.
+	f := mustRead(t, "x.csv", "device,Vg set (V),Vg (V),id_A\nD1,2,2.01,1\nD1,3,3.02,2\nD1,4,4.01,3\n", Options{})
+	checkShow(t, f, "D1 up vg_v[2.01,3.02,4.01] id_a[1,2,3]")
+	f = mustRead(t, "x.csv", "device,Vg set (V),id_A\nD1,2,1\nD1,3,2\nD1,4,3\n", Options{})
+	checkShow(t, f, "D1 up vg_v[2,3,4] id_a[1,2,3]")
+	f = mustRead(t, "x.csv", "Vg set (V),Vg (V),D1 (A)\n2,2.01,1\n3,3.02,2\n4,4.01,3\n", Options{})
+	checkShow(t, f, "D1 up vg_v[2.01,3.02,4.01] id_a[1,2,3]")
+	// The serial names the device, the part is the type.
+	f = mustRead(t, "x.csv", "part,serial,vgs_at_10mA_V\nIRF,7,2\nIRF,8,3\n", Options{})
+	checkShow(t, f, "7 spot vg_v[2] id_a[10e-3]\n8 spot vg_v[3] id_a[10e-3]")
+}
+
+func TestTemperatureInKelvinIsNotRead(t *testing.T) {
+	f := mustRead(t, "x.csv", "device,vg_V,id_A,T (K)\nD1,2,1,298\nD1,3,2,298\nD1,4,3,298\n", Options{})
+	checkShow(t, f, "D1 up vg_v[2,3,4] id_a[1,2,3]")
+	if !hasRemark(f, CodeColumnNotUsed, "K is not read") {
+		t.Errorf("%+v", f.Remarks)
+	}
 }

@@ -35,7 +35,7 @@ func (r *reader) findLayout() error {
 	r.drop(vth, "a threshold beside sweeps")
 	switch {
 	case len(gates) == 0:
-		return r.noGate()
+		return r.askGate()
 	case plain && current:
 		r.dropSpots(gates)
 		if device != nil && r.isCounter(device) {
@@ -57,10 +57,29 @@ func (r *reader) findLayout() error {
 		free[0].as, free[0].how = "id", "unit"
 		r.layout = layoutLong
 	default:
-		hint := "--spot-current 10mA, or --map id=COLUMN"
-		return r.ambiguous(r.headerLine, hint, "there is a gate voltage, but no current: at which current was it read?")
+		return r.askCurrent(device, free)
 	}
 	return nil
+}
+
+// askCurrent asks for the current of gate voltages that stand alone: another
+// column, or the one that all were read at.
+func (r *reader) askCurrent(device *column, free []*column) error {
+	const text = "there is a gate voltage, but no current: at which current was it read?"
+	const hint = "--spot-current 10mA, or --map id=COLUMN"
+	if device == nil || len(free) > 0 {
+		return r.ambiguous(r.headerLine, hint, text)
+	}
+	answer, err := r.ask(Question{Text: text, Flag: "--spot-current"}, r.headerLine, hint)
+	if err != nil {
+		return err
+	}
+	x, err := record.ParseNumber(answer, "A")
+	if err != nil || x <= 0 {
+		return r.ambiguous(r.headerLine, hint, "%q is no current", answer)
+	}
+	r.opt.SpotCurrent = record.Known(x)
+	return r.spotLayout(device)
 }
 
 func (r *reader) isGiven(short string) bool {
@@ -83,8 +102,24 @@ func (r *reader) freeColumns() []*column {
 	return free
 }
 
-func (r *reader) noGate() error {
-	return r.ambiguous(r.headerLine, "--map vg=COLUMN,id=COLUMN", "no column is recognised as the gate voltage; the columns are %s", r.listColumns())
+// askGate asks which column holds the gate voltage when none is recognised.
+func (r *reader) askGate() error {
+	text := "no column is recognised as the gate voltage; the columns are " + r.listColumns()
+	var list []*column
+	for j := range r.cols {
+		if c := &r.cols[j]; c.numeric() && (c.how == "" || c.how == "header" && dimOf(c.as) == "V") {
+			list = append(list, c)
+		}
+	}
+	if r.opt.Ask == nil || len(list) == 0 {
+		return r.ambiguous(r.headerLine, "--map vg=COLUMN,id=COLUMN", "%s", text)
+	}
+	c, err := r.askColumn("vg", list, text)
+	if err != nil {
+		return err
+	}
+	c.as, c.how = "vg", "asked"
+	return r.findLayout()
 }
 
 // drop leaves columns out and says so.

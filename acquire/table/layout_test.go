@@ -290,3 +290,42 @@ func TestTooManyDevices(t *testing.T) {
 		t.Error(err)
 	}
 }
+
+// What a file leaves open is asked when somebody can answer, once each.
+func TestQuestions(t *testing.T) {
+	for _, c := range []struct{ name, text, flag, answer, want string }{
+		{"gate", "device,foo (V),id_A\nD1,2,1\nD1,3,2\nD1,4,3\n", "--map vg=", "2", "D1 up vg_v[2,3,4] id_a[1,2,3]"},
+		{"which gate", "device,Vg (V),Ugs (V),id_A\nD1,2,2.1,1\nD1,3,3.1,2\nD1,4,4.1,3\n", "--map vg=", "3", "D1 up vg_v[2.1,3.1,4.1] id_a[1,2,3]"},
+		{"current of spots", "device,Vg (V)\nD1,2\nD2,3\n", "--spot-current", "10mA", "D1 spot vg_v[2] id_a[0.01]\nD2 spot vg_v[3] id_a[0.01]"},
+		{"load", "device,vg_V,id_A,U_L (V)\nD1,2,0,12.0\nD1,3,0,12.0\nD1,4,0,12.0\n", "--map", "vd", "D1 up vg_v[2,3,4] id_a[0,0,0] vd_v[12.0,12.0,12.0]"},
+	} {
+		t.Run(c.name, func(t *testing.T) {
+			asked := 0
+			f := mustRead(t, "x.csv", c.text, Options{Ask: func(q Question) (string, error) {
+				asked++
+				if q.Flag != c.flag || q.Text == "" {
+					t.Errorf("asked %+v", q)
+				}
+				return c.answer, nil
+			}})
+			checkShow(t, f, c.want)
+			if asked != 1 {
+				t.Errorf("asked %d times", asked)
+			}
+			wantError(t, "x.csv", c.text, Options{Ask: func(Question) (string, error) { return "", errors.New("no terminal") }}, ErrAmbiguous, "no terminal", c.flag[:5])
+		})
+	}
+}
+
+func TestNamesAreTrimmed(t *testing.T) {
+	f := mustRead(t, "x.csv", "device, vg_V, id_A\nD1,2,0.1\n D1 ,3,0.2\nD1\u00a0,4,0.3\n\"D1\",5,0.4\n", Options{})
+	checkShow(t, f, "D1 up vg_v[2,3,4,5] id_a[0.1,0.2,0.3,0.4]")
+}
+
+func TestGarbageBetweenRowsCutsNoSweep(t *testing.T) {
+	f := mustRead(t, "x.csv", "device,vg_V,id_A\nD1,2,0.1\nD1,3,0.2\nD1,3.5,0.25\nXX,what,is\nD1,4,0.3\nD1,5,0.4\n", Options{})
+	checkShow(t, f, "D1 up vg_v[2,3,3.5,4,5] id_a[0.1,0.2,0.25,0.3,0.4]")
+	if f.Refused != 1 || f.Sweeps[0].Line(3) != 6 {
+		t.Errorf("%+v %+v", f.Refusals, f.Sweeps[0].Lines)
+	}
+}

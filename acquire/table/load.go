@@ -41,10 +41,16 @@ func (r *reader) settleLoad() error {
 		as, why = "vl", "it rises with the current"
 	case fall > 0.01 && fall > 10*rise:
 		as, why = "vd", "it falls when the current rises"
+	case c.name == "vl": // our own name for it, and the readings do not object
+		as, why = "vl", "it is named so"
 	default:
 		n := c.index + 1
-		return r.ambiguous(r.headerLine, fmt.Sprintf("--map vl=%d or --map vd=%d", n, n),
-			"column %s may be the voltage across R_L or at the drain, and it does not tell by rising or falling with the current", c.title())
+		text := fmt.Sprintf("column %s may be the voltage across R_L (vl) or at the drain (vd), and it does not tell by rising or falling with the current", c.title())
+		answer, err := r.ask(Question{Text: text, Choices: []string{"vl", "vd"}, Flag: "--map"}, r.headerLine, fmt.Sprintf("--map vl=%d or --map vd=%d", n, n))
+		if err != nil {
+			return err
+		}
+		as, why = answer, "so it was answered"
 	}
 	for _, c := range r.mapped(roleLoad) {
 		c.as, c.how = as, "behaviour"

@@ -73,11 +73,13 @@ type longReader struct {
 	w        *rows
 	fields   []field
 	who      []*column // device, lot, package, side; nil where there is none
+	only     *column   // the one of them, when there is but one
 	sweep    *column
 	width    int // cells that a row must have
 	builders []*builder
 	byKey    map[string]*builder
-	key      []byte   // of the last row
+	raw      []byte   // names of the last row as they stand there
+	key      []byte   // names of the last row, trimmed
 	last     *builder // of the last row
 	filled   *builder // of the last row that was kept
 	device   string   // of a file without device column
@@ -88,6 +90,9 @@ func (r *reader) readLong() ([]*builder, error) {
 	l := &longReader{r: r, w: r.rowsOfData(), fields: fields(r.numberColumns()), byKey: map[string]*builder{}, device: r.talkDevice}
 	for _, role := range []Role{RoleDevice, RoleLot, RolePackage, RoleSide} {
 		l.who = append(l.who, r.first(string(role)))
+	}
+	if l.who[1] == nil && l.who[2] == nil && l.who[3] == nil {
+		l.only = l.who[0]
 	}
 	l.sweep = r.first(string(RoleSweep))
 	for _, f := range l.fields {
@@ -160,66 +165,64 @@ func (l *longReader) point(b *builder) {
 // builder finds the device of the row. Most rows are of the same device as the
 // one before, so that is looked at first.
 func (l *longReader) builder() *builder {
-	if l.r.layout == layoutPerDevice && l.who[1] == nil && l.who[2] == nil && l.who[3] == nil {
-		if l.last == nil {
-			l.key = append(l.key[:0], l.device...)
-			l.enter(names{device: l.device})
+	if l.only != nil && l.last != nil {
+		if cell := l.w.cells[l.only.index]; len(cell)+1 == len(l.raw) && string(cell) == string(l.raw[:len(cell)]) {
+			return l.last
 		}
+	}
+	n := len(l.raw)
+	for _, c := range l.who {
+		if c != nil {
+			l.raw = append(append(l.raw, l.w.cells[c.index]...), 0x1f)
+		}
+	}
+	same := bytes.Equal(l.raw[:n], l.raw[n:])
+	l.raw = l.raw[:copy(l.raw, l.raw[n:])]
+	if same && l.last != nil {
 		return l.last
 	}
-	cells := l.w.cells
-	only := l.who[0] != nil && l.who[1] == nil && l.who[2] == nil && l.who[3] == nil
-	if only {
-		cell := cells[l.who[0].index]
-		if l.last != nil && bytes.Equal(cell, l.key) {
-			return l.last
+	l.enter()
+	return l.last
+}
+
+// enter makes the device of the row the last one.
+func (l *longReader) enter() {
+	l.key = append(l.key[:0], l.device...)
+	for _, c := range l.who {
+		l.key = append(l.key, 0x1f)
+		if c != nil {
+			l.key = append(l.key, trim(l.w.cells[c.index])...)
 		}
-		l.key = append(l.key[:0], cell...)
-	} else {
-		n := len(l.key)
-		for _, c := range l.who {
-			if c != nil {
-				l.key = append(append(l.key, cells[c.index]...), 0x1f)
-			}
-		}
-		if l.last != nil && bytes.Equal(l.key[:n], l.key[n:]) {
-			l.key = l.key[:n]
-			return l.last
-		}
-		l.key = l.key[:copy(l.key, l.key[n:])]
 	}
+	b, known := l.byKey[string(l.key)]
+	if !known {
+		b = l.newBuilder()
+	} else if b != l.filled && b.len() > 0 {
+		b.returns = append(b.returns, b.len())
+	}
+	l.last = b
+}
+
+func (l *longReader) newBuilder() *builder {
 	who := names{device: l.device}
 	for i, c := range l.who {
 		if c != nil {
-			*who.at(i) = string(trim(cells[c.index]))
+			*who.at(i) = string(trim(l.w.cells[c.index]))
 		}
 	}
-	l.enter(who)
-	return l.last
+	bad := who.check()
+	b := &builder{names: who, bad: bad, cols: make([]buffer, len(l.fields))}
+	if bad == "" {
+		l.reserve(b)
+	}
+	l.byKey[string(l.key)] = b
+	l.builders = append(l.builders, b)
+	return b
 }
 
 // at gives the i-th name: device, lot, package, side.
 func (n *names) at(i int) *string {
 	return [...]*string{&n.device, &n.lot, &n.pkg, &n.side}[i]
-}
-
-// enter makes the device of l.key the last one.
-func (l *longReader) enter(who names) {
-	if b, ok := l.byKey[string(l.key)]; ok {
-		if b != l.filled && b.len() > 0 {
-			b.returns = append(b.returns, b.len())
-		}
-		l.last = b
-		return
-	}
-	bad := who.check()
-	b := &builder{names: who, bad: bad, cols: make([]buffer, len(l.fields))}
-	if b.bad == "" {
-		l.reserve(b)
-	}
-	l.byKey[string(l.key)] = b
-	l.builders = append(l.builders, b)
-	l.last = b
 }
 
 // reserve makes room for as many points as the device before had; so all the
@@ -277,10 +280,8 @@ func (l *longReader) talk(line int, row []byte) {
 	if l.r.layout != layoutPerDevice || l.who[0] != nil {
 		return
 	}
-	if name := talkDevice(string(row[:min(len(row), maxTalk)])); name != "" && name != l.device {
-		l.device = name
-		l.key = append(l.key[:0], name...)
-		l.enter(names{device: name})
+	if name, _ := talkDevice(string(row[:min(len(row), maxTalk)])); name != "" && name != l.device {
+		l.device, l.last = name, nil
 	} else if name != "" && l.last != nil {
 		l.breakAt(l.last)
 	}

@@ -22,11 +22,12 @@ const (
 
 // Codes of the remarks of this package.
 const (
-	CodeSameRows     = "same-rows"     // one block of rows under two devices
-	CodeFlagWins     = "flag-wins"     // a flag contradicts the file
-	CodeUnitDoubtful = "unit-doubtful" // no bench gives such numbers in that unit
-	CodeTalkDiffers  = "talk-differs"  // two comments contradict one another
-	CodeCutOff       = "cut-off"       // the file seems to end too early
+	CodeSameRows      = "same-rows"       // one block of rows under two devices
+	CodeFlagWins      = "flag-wins"       // a flag contradicts the file
+	CodeUnitDoubtful  = "unit-doubtful"   // no bench gives such numbers in that unit
+	CodeTalkDiffers   = "talk-differs"    // two comments contradict one another
+	CodeCutOff        = "cut-off"         // the file seems to end too early
+	CodeColumnNotUsed = "column-not-used" // a column in a unit that is not read
 )
 
 // reader is one file while it is read. Its steps run once, in the order of
@@ -101,7 +102,7 @@ func newReader(path string, opt Options) *reader {
 	if i := strings.LastIndexAny(name, `/\`); i >= 0 {
 		name = name[i+1:]
 	}
-	return &reader{place: path, opt: opt, file: &File{Name: name}, talkText: map[Role]string{}}
+	return &reader{place: path, opt: opt, file: &File{Name: name, Dialect: Dialect{Notes: []string{}}}, talkText: map[Role]string{}}
 }
 
 // ioError says in plain words what the file system said.

@@ -2,6 +2,7 @@ package table
 
 import (
 	"regexp"
+	"slices"
 	"strconv"
 	"strings"
 	"unicode"
@@ -123,14 +124,25 @@ func parts(text string) []string {
 	return append(list, strings.TrimSpace(text[lo:]))
 }
 
-// talkDevice is the device that a comment names, "" for none.
-func talkDevice(text string) string {
+// talkDevice is the device that a comment names, "" for none, and how sure that
+// is: a serial before a 'device', which may be the type. Words for a sample are
+// not taken: they say how the lot was drawn.
+func talkDevice(text string) (name string, rank int) {
 	for _, s := range listen(text) {
-		if s.kind == string(RoleDevice) {
-			return strings.Trim(s.value, `" `)
+		if s.kind != string(RoleDevice) {
+			continue
 		}
+		switch f := fold(s.key); {
+		case strings.HasPrefix(f, "ser") || f == "sn" || f == "snr" || f == "dut" || strings.HasPrefix(f, "pru") || f == "exemplar" || f == "specimen":
+			rank = 0
+		case strings.HasPrefix(f, "dev"):
+			rank = 1
+		default:
+			continue
+		}
+		return strings.Trim(s.value, `" `), rank
 	}
-	return ""
+	return "", 0
 }
 
 // readTalk takes from comments what was said of the conditions. It is called
@@ -138,9 +150,14 @@ func talkDevice(text string) string {
 // decimal mark are known.
 func (r *reader) readTalk() {
 	r.talkCond, r.talkText, r.file.Proposed = record.Condition{}, map[Role]string{}, nil
+	r.file.Remarks = slices.DeleteFunc(r.file.Remarks, func(m Remark) bool { return m.Code == CodeTalkDiffers })
+	best := 2
 	for _, t := range r.talk {
 		for _, s := range listen(t.text) {
 			r.propose(t.line, s)
+		}
+		if name, rank := talkDevice(t.text); name != "" && rank < best && t.line < r.bodyLine {
+			r.talkDevice, best = name, rank
 		}
 	}
 }
@@ -149,10 +166,6 @@ func (r *reader) readTalk() {
 func (r *reader) propose(line int, s said) {
 	c := &r.talkCond
 	switch s.kind {
-	case string(RoleDevice):
-		if r.talkDevice == "" && line < r.bodyLine {
-			r.talkDevice = strings.Trim(s.value, `" `)
-		}
 	case string(RoleOperator), string(RoleFixture), string(RoleDate), string(RoleDateCode), string(RoleMarking), string(RoleTube), roleTime:
 		role := Role(s.kind)
 		if s.kind == roleTime {
@@ -328,17 +341,26 @@ func afterNumber(text string) string {
 	return ""
 }
 
-// circuitOf reads how a comment names the circuit.
+// circuitOf reads how a comment names the circuit, word by word.
 func circuitOf(text string) string {
-	f := fold(text)
-	for _, c := range []struct{ word, circuit string }{
-		{"diode", "diode"}, {"draintiedtogate", "diode"}, {"gatetiedtodrain", "diode"}, {"gateanddraintied", "diode"}, {"draingate", "diode"}, {"gatedrain", "diode"},
-		{"fixed", "fixed"}, {"constantvds", "fixed"}, {"festevds", "fixed"}, {"vdsconst", "fixed"},
-		{"load", "load"}, {"last", "load"}, {"charge", "load"}, {"carga", "load"}, {"carico", "load"}, {"resistor", "load"}, {"rl", "load"},
-	} {
-		if strings.Contains(f, c.word) {
-			return c.circuit
+	has := func(prefixes ...string) bool {
+		for _, w := range strings.FieldsFunc(text, func(c rune) bool { return !unicode.IsLetter(c) && c != '_' }) {
+			f := fold(w)
+			for _, p := range prefixes {
+				if f == p || len(p) > 3 && strings.HasPrefix(f, p) {
+					return true
+				}
+			}
 		}
+		return false
+	}
+	switch {
+	case has("diode"), has("drain", "drains") && has("gate"):
+		return string(record.Diode)
+	case has("fixed", "constant", "fest", "konstant"):
+		return string(record.Fixed)
+	case has("load", "last", "lastwiderstand", "charge", "carga", "carico", "resistor", "widerstand", "rl"):
+		return string(record.Load)
 	}
 	return ""
 }

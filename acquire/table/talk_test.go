@@ -51,7 +51,7 @@ func TestCommentsProposeConditions(t *testing.T) {
 		{"# VDD = 12 A", record.Condition{}},
 		{"# VDD = 1,200 V", record.Condition{}},
 		{"# R_L = big", record.Condition{}},
-		{"# circuit: see photo", record.Condition{}},
+		{"# circuit: see photo of the world", record.Condition{}},
 		{"# http://example.org/vdd:12", record.Condition{}},
 	} {
 		f := mustRead(t, "x.csv", c.comment+"\n"+talkBody, Options{})
@@ -100,6 +100,13 @@ func TestCommentsThatContradictEachOther(t *testing.T) {
 	}
 }
 
+func TestContradictionsAreToldOnce(t *testing.T) {
+	f := mustRead(t, "x.csv", "# VDD = 12 V\n# VDD = 13 V\n"+talkBody, Options{})
+	if len(f.Remarks) != 1 {
+		t.Errorf("%+v", f.Remarks)
+	}
+}
+
 func TestSpotCurrentByFlagAndHeader(t *testing.T) {
 	text := "dut,vgs_at_10mA_V\nA,2\n"
 	f := mustRead(t, "x.csv", text, Options{SpotCurrent: record.Known(0.02)})
@@ -126,6 +133,25 @@ func TestHostileComments(t *testing.T) {
 			if strings.ContainsAny(p, "\x1b\x00") {
 				t.Errorf("%q: proposed %q", c, p)
 			}
+		}
+	}
+}
+
+func TestCommentsNameTheDevice(t *testing.T) {
+	body := "vg_V,id_A\n2,0.1\n3,0.2\n4,0.3\n"
+	for comment, want := range map[string]string{
+		"# device: D07":                   "D07",
+		"# device: IRF530\n# serial: D07": "D07",
+		"# serial: D07\n# device: IRF530": "D07",
+		"# Prüfling: 7":                   "7",
+		"Seriennummer,A 12":               "A 12",
+		"# sample: 20 of 200":             "file",
+		"# transistor: IRF530":            "file",
+		"# the device: see photo":         "file",
+	} {
+		f := mustRead(t, "file.csv", comment+"\n"+body, Options{})
+		if f.Sweeps[0].Device != want {
+			t.Errorf("%q: device %q, want %q", comment, f.Sweeps[0].Device, want)
 		}
 	}
 }

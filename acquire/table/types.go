@@ -32,7 +32,7 @@ type Error struct {
 // Question is something that the file leaves open.
 type Question struct {
 	Text    string   // one sentence
-	Choices []string // what may be answered, as the flag takes it
+	Choices []string // what may be answered, as the flag takes it; empty: anything the flag takes
 	Flag    string   // flag that answers it: "--decimal"
 }
 
@@ -88,7 +88,7 @@ type ColumnFound struct {
 	Header string `json:"header"`
 	As     string `json:"as"`   // short name: vg, id, ..., device, ..., ignore
 	Unit   string `json:"unit"` // as read: "mA"; "" for texts
-	How    string `json:"how"`  // "header", "--map", "remembered", "behaviour", "position"
+	How    string `json:"how"`  // "header", "--map", "--lot-column", "remembered", "behaviour", "position", "unit", "asked"
 }
 
 // Dialect is what was recognised about the text of the file.

@@ -24,7 +24,7 @@ var symbols = map[string]string{
 	"°c": "degC", "oc": "degC", "c": "degC", "degc": "degC", "celsius": "degC", "gradc": "degC", "grad": "degC", "deg": "degC", "°": "degC",
 	"sec": "s", "secs": "s", "second": "s", "seconds": "s", "sekunden": "s", "sek": "s", "secondes": "s", "segundos": "s", "secondi": "s",
 	"k": "K", "kelvin": "K", "°k": "K", "°f": "degF", "f": "degF", "degf": "degF",
-	"min": "min", "minutes": "min", "h": "min", "hours": "min",
+	"min": "min", "minutes": "min", "minuten": "min", "h": "min", "hours": "min",
 }
 
 // siPrefixes in front of a symbol. M and m are told apart; U and N, which stand for

@@ -51,12 +51,14 @@ func (r *reader) checkUnitOptions() error {
 // for temperature and time.
 func (r *reader) settleUnits(cols []*column) error {
 	var open []*column
+	told := map[string]bool{} // a wide file has one unit for thousands of columns
 	for _, c := range cols {
 		dim := dimOf(c.as)
 		if given, ok := r.unitOption(c.as); ok {
 			u, _ := readUnit(given)
 			u, _ = u.as(dim)
-			if c.hasUnit && c.unit != u {
+			if c.hasUnit && c.unit != u && !told[c.as] {
+				told[c.as] = true
 				r.remark(CodeFlagWins, "column %s is headed in %s and read in %s, as --units says", c.title(), c.unit.text, u.text)
 			}
 			c.unit, c.hasUnit, c.odd = u, true, ""

@@ -4,8 +4,6 @@ import (
 	"fmt"
 	"strings"
 
-	"golang.org/x/text/unicode/norm"
-
 	"gatesill/store/record"
 )
 
@@ -91,39 +89,41 @@ func (r *reader) cellsInVolts(free []*column) bool {
 func (r *reader) cutNames(free []*column) {
 	loose := true
 	for _, c := range free {
-		t := plainText(c.text)
-		if name, u, ok := bracketUnit(t); ok && name != "" {
-			c.name, c.unit, c.hasUnit = name, u, true
-			continue
-		}
-		if i := strings.LastIndex(t, "/"); i > 0 {
-			if u, ok := readUnit(t[i+1:]); ok && len(u.text) > 1 {
-				c.name, c.unit, c.hasUnit = tidy(t[:i]), u, true
-				continue
-			}
-		}
-		name, u, ok := splitUnit(t)
+		name, u, ok := splitUnit(oneLine(c.text))
 		loose = loose && ok && name != "" && (u.dim == "A" || u.dim == "V")
 	}
 	for _, c := range free {
-		t := plainText(c.text)
-		if _, _, ok := bracketUnit(t); ok {
+		name, u, ok := marked(oneLine(c.text))
+		if !ok && loose {
+			name, u, ok = splitUnit(oneLine(c.text))
+		}
+		if c.name = name; ok {
+			c.unit, c.hasUnit = u, true
 			continue
 		}
-		if loose {
-			name, u, _ := splitUnit(t)
-			c.name, c.unit, c.hasUnit = name, u, true
-		} else if c.name == "" || !c.hasUnit || !strings.Contains(t, "/") {
-			c.name = c.text
-			if len(r.unitCells) == 0 {
-				c.unit, c.hasUnit = unit{}, false
-			}
+		c.unit, c.hasUnit = unit{}, false
+		if c.index < len(r.unitCells) {
+			c.unit, c.hasUnit = readUnit(strings.Trim(r.unitCells[c.index], "()[]{}<> "))
 		}
 	}
 	r.cutLead(free)
 }
 
-func plainText(s string) string { return strings.Join(strings.Fields(norm.NFKC.String(s)), " ") }
+// marked takes off a unit that is marked as one: in brackets, or behind a slash
+// and longer than a letter.
+func marked(t string) (name string, u unit, ok bool) {
+	if name, u, ok = bracketUnit(t); ok && name != "" {
+		return name, u, true
+	}
+	if i := strings.LastIndexByte(t, '/'); i > 0 {
+		if u, ok = readUnit(t[i+1:]); ok && len(u.text) > 1 {
+			return tidy(t[:i]), u, true
+		}
+	}
+	return t, unit{}, false
+}
+
+func oneLine(s string) string { return strings.Join(strings.Fields(s), " ") }
 
 // cutLead takes a lead like "Id_" or "I_D " off names that all have the same.
 func (r *reader) cutLead(free []*column) {
@@ -132,7 +132,7 @@ func (r *reader) cutLead(free []*column) {
 	for i, c := range free {
 		lead, name := splitLead(c.name)
 		w, ok := lookup(lead)
-		if !ok || name == "" || dimOf(w.role) == "" || w.role == "vg" || role != "" && w.role != role {
+		if !ok || w.rank != sure || name == "" || dimOf(w.role) == "" || w.role == "vg" || role != "" && w.role != role {
 			return
 		}
 		role, names[i] = w.role, name
