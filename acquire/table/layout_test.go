@@ -10,7 +10,6 @@ import (
 )
 
 func TestLayouts(t *testing.T) {
-	ten := record.Known(0.01)
 	for _, c := range []struct {
 		name, file, text string
 		opt              Options
@@ -46,6 +45,9 @@ D1/R7 up vg_v[2,3,4] id_a[0.1,0.2,0.2]`},
 D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3] temp_c[25.0,25.1,25.3] t_s[0,1.5,3]`},
 		{"ID is the identifier", "x.csv", "ID,vg_V,I_D (A)\nD1,2,0.1\nD1,3,0.2\nD1,4,0.3\n", Options{}, "long", `
 D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]`},
+		{"ID is the identifier of spots", "x.csv", "id,vgs_V\n1,2.5\n2,2.6\n", Options{SpotCurrent: ten()}, "spot", `
+1 spot vg_v[2.5] id_a[0.01]
+2 spot vg_v[2.6] id_a[0.01]`},
 		{"no. counts the readings", "D7.csv", "Nr.;U_GS [V];I_D [A]\n1;2,0;0,1\n2;2,2;0,2\n3;2,4;0,3\n4;2,6;0,4\n5;2,8;0,5\n6;3,0;0,6\n", Options{}, "per-device", `
 D7 up vg_v[2.0,2.2,2.4,2.6,2.8,3.0] id_a[0.1,0.2,0.3,0.4,0.5,0.6]`},
 		{"no. numbers the devices", "x.csv", "Nr.;U_GS [V];I_D [A]\n1;2,9;0,01\n2;2,2;0,01\n3;2,7;0,01\n4;2,6;0,01\n5;2,8;0,01\n6;2,0;0,01\n", Options{}, "spot", `
@@ -134,7 +136,7 @@ D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3] vl_v[1,2,3] vd_v[11,10,9] vdd_v[12,12,12] ig
 		{"spots", "x.csv", "part,vgs@250mA\n=1+1,3.1\n../../etc,9.10\n", Options{Units: map[string]string{"vgs": "V"}}, "spot", `
 =1+1 spot vg_v[3.1] id_a[250e-3]
 ../../etc spot vg_v[9.10] id_a[250e-3]`},
-		{"spots, current by flag", "x.csv", "Prüfling;Ugs [V]\nA;2,5\nB;2,6\n", Options{SpotCurrent: ten}, "spot", `
+		{"spots, current by flag", "x.csv", "Prüfling;Ugs [V]\nA;2,5\nB;2,6\n", Options{SpotCurrent: ten()}, "spot", `
 A spot vg_v[2.5] id_a[0.01]
 B spot vg_v[2.6] id_a[0.01]`},
 		{"spots, current in a comment", "x.csv", "# Prüfstrom: 10 mA\nPrüfling;Ugs [V]\nA;2,5\nB;2,6\n", Options{}, "spot", `
