@@ -87,3 +87,21 @@ func BenchmarkReadWide(b *testing.B) {
 		}
 	}
 }
+
+// A lot of many small files, one a device, costs what a small file costs.
+func BenchmarkReadSmall(b *testing.B) {
+	text := "# V_DD = 12 V\n# R_L = 10 Ohm\nVg (V),Id (mA)\n"
+	for i := range 100 {
+		text += fmt.Sprintf("%.2f,%.3f\n", 2+float64(i)*0.02, float64(i*i)*0.01)
+	}
+	path := filepath.Join(b.TempDir(), "D07.csv")
+	if err := os.WriteFile(path, []byte(text), 0o600); err != nil {
+		b.Fatal(err)
+	}
+	b.ReportAllocs()
+	for b.Loop() {
+		if _, err := ReadFile(path, Options{}); err != nil {
+			b.Fatal(err)
+		}
+	}
+}

@@ -286,21 +286,24 @@ func (r *reader) listColumns() string {
 
 // settleBehaviour corrects what a header seems to say by what its column holds.
 func (r *reader) settleBehaviour() {
-	spots := slices.ContainsFunc(r.cols, func(c column) bool { return c.spot.IsKnown() })
+	spots := r.spotCurrent().IsKnown() || r.has(roleVth) && !r.has("vg") || slices.ContainsFunc(r.cols, func(c column) bool { return c.spot.IsKnown() })
 	device := slices.ContainsFunc(r.cols, func(c column) bool { return c.role == string(RoleDevice) && c.rank == sure })
 	for j := range r.cols {
 		c := &r.cols[j]
+		if c.how != "" {
+			continue
+		}
 		switch {
 		case c.role == "id" && fold(c.text) == "id" && !device && (c.texts > c.numbers || spots && !c.hasUnit):
 			c.role, c.rank = string(RoleDevice), sure // ID: the identifier, not the drain current
-		case c.hasUnit && (c.unit.dim == "K" || c.unit.dim == "degF" || c.unit.dim == "min") && (c.role == "temp" || c.role == "t") && c.how == "" && !r.isGiven(c.role):
+		case c.hasUnit && (c.unit.dim == "K" || c.unit.dim == "degF" || c.unit.dim == "min") && (c.role == "temp" || c.role == "t") && !r.isGiven(c.role):
 			c.as, c.how, c.role = string(RoleIgnore), "header", ""
 			r.remark(CodeColumnNotUsed, "column %s is not used: %s is not read, only °C and seconds are", c.title(), c.unit.text)
 		case c.role == roleTime && !c.numeric():
 			c.role = string(RoleDate)
 		case c.role == roleTime:
 			c.role = "t"
-		case c.role == roleTorT && c.how == "":
+		case c.role == roleTorT:
 			c.as, c.how = string(RoleIgnore), "header"
 			r.note("column %s is not used: temperature and time have the same letter; --map temp=%d or --map t=%d settles it", c.title(), c.index+1, c.index+1)
 		case c.rank == weaker && dimOf(c.role) != "" && !c.numeric() && c.texts > 0:

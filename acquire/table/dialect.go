@@ -7,8 +7,9 @@ import (
 )
 
 const (
-	sampleRows  = 200
-	sampleBytes = 2 << 20
+	sampleRows  = 200       // rows of the head that are looked at
+	sampleBytes = 256 << 10 // of a file with very long rows fewer, but
+	sampleLeast = 10        // at least so many
 )
 
 // kind is what a cell looks like, whatever the decimal mark.
@@ -38,6 +39,9 @@ func kindOf(cell []byte) kind {
 }
 
 func looksNumber(t []byte) bool {
+	if plainDigits(t) {
+		return true
+	}
 	if len(t) > maxDigits || bytes.IndexByte([]byte("+-.,0123456789\xe2"), t[0]) < 0 {
 		return false
 	}
@@ -59,6 +63,24 @@ func looksNumber(t []byte) bool {
 		}
 	}
 	return false
+}
+
+// plainDigits reports whether t is nothing but a sign, digits and one decimal
+// mark, as most numbers are.
+func plainDigits(t []byte) bool {
+	digits, marks := 0, 0
+	for i, c := range t {
+		switch {
+		case c-'0' <= 9:
+			digits++
+		case c == '.' || c == ',':
+			marks++
+		case c == '-' && i == 0:
+		default:
+			return false
+		}
+	}
+	return digits > 0 && marks <= 1 && len(t) <= maxDigits
 }
 
 // commentMarks are what a comment line may begin with.
@@ -98,7 +120,7 @@ func (r *reader) sample(delim byte, marks *comments) []sampled {
 	s := newSplitter(r.text, delim)
 	var rows []sampled
 	data := 0
-	for data < sampleRows && len(rows) < 10*sampleRows && s.pos < sampleBytes && s.next() {
+	for data < sampleRows && len(rows) < 10*sampleRows && (s.pos < sampleBytes || data < sampleLeast) && s.next() {
 		if len(bytes.TrimSpace(s.row)) == 0 || len(s.row) > maxLine {
 			continue
 		}
@@ -202,7 +224,7 @@ func (r *reader) commentMarks(delim byte) *comments {
 	var data int
 	commented := map[byte]int{}
 	s := newSplitter(r.text, delim)
-	for n := 0; n < 2*sampleRows && s.pos < sampleBytes && s.next(); n++ {
+	for n := 0; n < 2*sampleRows && (s.pos < sampleBytes || n < sampleLeast) && s.next(); n++ {
 		if len(s.row) == 0 || len(s.row) > maxLine {
 			continue
 		}

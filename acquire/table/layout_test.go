@@ -10,7 +10,6 @@ import (
 )
 
 func TestLayouts(t *testing.T) {
-	ten := record.Known(0.01)
 	for _, c := range []struct {
 		name, file, text string
 		opt              Options
@@ -46,6 +45,9 @@ D1/R7 up vg_v[2,3,4] id_a[0.1,0.2,0.2]`},
 D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3] temp_c[25.0,25.1,25.3] t_s[0,1.5,3]`},
 		{"ID is the identifier", "x.csv", "ID,vg_V,I_D (A)\nD1,2,0.1\nD1,3,0.2\nD1,4,0.3\n", Options{}, "long", `
 D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]`},
+		{"ID is the identifier of spots", "x.csv", "id,vgs_V\n1,2.5\n2,2.6\n", Options{SpotCurrent: ten()}, "spot", `
+1 spot vg_v[2.5] id_a[0.01]
+2 spot vg_v[2.6] id_a[0.01]`},
 		{"no. counts the readings", "D7.csv", "Nr.;U_GS [V];I_D [A]\n1;2,0;0,1\n2;2,2;0,2\n3;2,4;0,3\n4;2,6;0,4\n5;2,8;0,5\n6;3,0;0,6\n", Options{}, "per-device", `
 D7 up vg_v[2.0,2.2,2.4,2.6,2.8,3.0] id_a[0.1,0.2,0.3,0.4,0.5,0.6]`},
 		{"no. numbers the devices", "x.csv", "Nr.;U_GS [V];I_D [A]\n1;2,9;0,01\n2;2,2;0,01\n3;2,7;0,01\n4;2,6;0,01\n5;2,8;0,01\n6;2,0;0,01\n", Options{}, "spot", `
@@ -100,10 +102,41 @@ D2 down vg_v[3,2] id_a[3.1,2.1]`},
 		{"wide, volts across the load", "x.csv", "Vg (V),D1 (V),D2 (V)\n2,0.1,0.2\n3,0.2,0.3\n4,0.3,0.4\n", Options{}, "wide", `
 D1 up vg_v[2,3,4] vl_v[0.1,0.2,0.3]
 D2 up vg_v[2,3,4] vl_v[0.2,0.3,0.4]`},
+		{"wide, volts at the drain by flag", "x.csv", "Vg (V),D1,D2\n2,12,12\n3,12,12\n4,12,12\n", Options{Units: map[string]string{"vd": "V"}}, "wide", `
+D1 up vg_v[2,3,4] vd_v[12,12,12]
+D2 up vg_v[2,3,4] vd_v[12,12,12]`},
+		{"wide, volts in the cells", "x.csv", "Vg (V);D1;D2\n2;12 V;OL\n3;11 V;10,5 V\n4;10 V;9 V\n", Options{}, "wide", `
+D1 up vg_v[2,3,4] vd_v[12,11,10]
+D2 up vg_v[2,3,4] vd_v[null,10.5,9] 0:vd_v=overload(OL)`},
+		{"wide, gate without a number", "x.csv", "Vg (V),D1 (A),D2 (A)\n2,0.1,0.2\nOL,0.2,n/a\n4,0.3,0.4\n", Options{}, "wide", `
+D1 up vg_v[2,null,4] id_a[0.1,0.2,0.3] 1:vg_v=overload(OL)
+D2 up vg_v[2,null,4] id_a[0.2,null,0.4] 1:vg_v=overload(OL) 1:id_a=missing(n/a)`},
+		{"wide, header again", "x.csv", "Vg (V),D1 (A),D2 (A)\n2,0.1,0.2\n3,0.2,0.3\n4,0.3,0.4\nVg (V),D1 (A),D2 (A)\n4.5,0.1,0.2\n5,0.2,0.3\n", Options{}, "wide", `
+D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]
+D2 up vg_v[2,3,4] id_a[0.2,0.3,0.4]
+D1 up vg_v[4.5,5] id_a[0.1,0.2]
+D2 up vg_v[4.5,5] id_a[0.2,0.3]`},
+		{"wide, one header twice", "x.csv", "Vg (V),D1 (A),D1 (A)\n2,0.1,0.2\n3,0.2,0.3\n4,0.3,0.4\n", Options{}, "wide", `
+D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]
+D1 up vg_v[2,3,4] id_a[0.2,0.3,0.4]`},
+		{"current known by its unit", "x.csv", "device,vg_V,channel 2 (mA)\nD1,2,0.1\nD1,3,0.2\nD1,4,0.3\n", Options{}, "long", `
+D1 up vg_v[2,3,4] id_a[0.1e-3,0.2e-3,0.3e-3]`},
+		{"drain by --units", "x.csv", "device,vg_V,Drain\nD1,2,0.1\nD1,3,0.2\nD1,4,0.3\n", Options{Units: map[string]string{"id": "mA"}}, "long", `
+D1 up vg_v[2,3,4] id_a[0.1e-3,0.2e-3,0.3e-3]`},
+		{"spots and thresholds beside sweeps", "x.csv", "device,vg_V,id_A,vth_V,vgs_at_10mA_V\nD1,2,0.1,2.5,2.7\nD1,3,0.2,2.5,2.7\nD1,4,0.3,2.5,2.7\n", Options{}, "long", `
+D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]`},
+		{"spots, transconductance at their current", "x.csv", "dut,vgs_at_250mA_V,gm_S\nA,3.5,1.4\n", Options{}, "spot", `
+A spot vg_v[3.5] id_a[250e-3] gm_s[1.4]`},
+		{"spot of the file itself", "D9.csv", "vgs_at_250mA_V\n3.5\n", Options{}, "spot", `
+D9 spot vg_v[3.5] id_a[250e-3]`},
+		{"time of day", "x.csv", "device,time,vg_V,id_A,t_min\nD1,12:00:01,2,0.1,1\nD1,12:00:02,3,0.2,2\nD1,12:00:03,4,0.3,3\n", Options{}, "long", `
+D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]`},
+		{"all quantities", "x.csv", "device,Vg (V),Id (A),V_RL (V),Vds (V),Vdd (V),Ig (nA),temp_C,t_s\nD1,2,0.1,1,11,12,5,25,0\nD1,3,0.2,2,10,12,5,25,1\nD1,4,0.3,3,9,12,6,25,2\n", Options{}, "long", `
+D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3] vl_v[1,2,3] vd_v[11,10,9] vdd_v[12,12,12] ig_a[5e-9,5e-9,6e-9] temp_c[25,25,25] t_s[0,1,2]`},
 		{"spots", "x.csv", "part,vgs@250mA\n=1+1,3.1\n../../etc,9.10\n", Options{Units: map[string]string{"vgs": "V"}}, "spot", `
 =1+1 spot vg_v[3.1] id_a[250e-3]
 ../../etc spot vg_v[9.10] id_a[250e-3]`},
-		{"spots, current by flag", "x.csv", "Prüfling;Ugs [V]\nA;2,5\nB;2,6\n", Options{SpotCurrent: ten}, "spot", `
+		{"spots, current by flag", "x.csv", "Prüfling;Ugs [V]\nA;2,5\nB;2,6\n", Options{SpotCurrent: ten()}, "spot", `
 A spot vg_v[2.5] id_a[0.01]
 B spot vg_v[2.6] id_a[0.01]`},
 		{"spots, current in a comment", "x.csv", "# Prüfstrom: 10 mA\nPrüfling;Ugs [V]\nA;2,5\nB;2,6\n", Options{}, "spot", `
@@ -202,6 +235,8 @@ func TestLayoutAmbiguous(t *testing.T) {
 		{"two gates", "device,Vg (V),Ugs (V),id_A\nD1,2,2,3\nD1,3,3,4\n", "both look like vg", "--map vg=2 or --map vg=3"},
 		{"drain of what", "device,Vg (V),Drain\nD1,2,2\nD1,3,3\n", "drain current or drain voltage", "--map id=3"},
 		{"spots of nobody", "vgs_at_10mA_V\n2.5\n2.6\n", "no device column", "--map device"},
+		{"wide in two units", "Vg (V),D1 (A),D2 (V)\n2,1,2\n3,2,3\n", "other device columns are not", ""},
+		{"gm at which current", "dut,vgs_at_1mA_V,vgs_at_1A_V,gm_S\nA,1,2,3\n", "at which current", "--spot-current"},
 		{"two spots at one current", "dut,vgs_at_10mA_V,Ugs bei 10 mA (V)\nA,1,2\n", "same current", "--map vg=2"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
@@ -327,5 +362,42 @@ func TestGarbageBetweenRowsCutsNoSweep(t *testing.T) {
 	checkShow(t, f, "D1 up vg_v[2,3,3.5,4,5] id_a[0.1,0.2,0.25,0.3,0.4]")
 	if f.Refused != 1 || f.Sweeps[0].Line(3) != 6 {
 		t.Errorf("%+v %+v", f.Refusals, f.Sweeps[0].Lines)
+	}
+}
+
+func TestWideRefusesRowsWhole(t *testing.T) {
+	text := "Vg (V),T (°C),D1 (A),D2 (A)\n2,25,0.1,0.2\n3,OL,0.2,bad\n4,OL,0.3,0.4\n5,25,1,1\n6,25,1,1\n7,25,1\n8,25,1,1\n9,25,1,1\n10,25,1,1\n11,25,1,1\n"
+	f := mustRead(t, "x.csv", text, Options{})
+	checkShow(t, f, `
+D1 up vg_v[2,4,5,6,8,9,10,11] id_a[0.1,0.3,1,1,1,1,1,1] temp_c[25,null,25,25,25,25,25,25] 1:temp_c=overload(OL)
+D2 up vg_v[2,4,5,6,8,9,10,11] id_a[0.2,0.4,1,1,1,1,1,1] temp_c[25,null,25,25,25,25,25,25] 1:temp_c=overload(OL)`)
+	if f.Refused != 2 || f.States != 1 || f.Refusals[0].Reason != `D2 "bad" is no number` || f.Refusals[1].Reason != "the row has 3 cells, want 4" {
+		t.Errorf("%d states, %+v", f.States, f.Refusals)
+	}
+	wantError(t, "x.csv", "Vg (V),D1 (A),D\x1b2 (A)\n2,1,1\n3,2,2\n", Options{}, ErrRefused, "column 3: device name", "")
+}
+
+func TestLoadResistorColumn(t *testing.T) {
+	read := func(text string, opt Options) record.Num {
+		f := mustRead(t, "x.csv", text, opt)
+		return f.Sweeps[0].Condition.RL
+	}
+	const rows = "\nD1,2,0.1,%s\nD1,3,0.2,%s\nD1,4,0.3,%s\n"
+	fill := func(head, cell string) string { return head + fmt.Sprintf(rows, cell, cell, cell) }
+	for _, c := range []struct {
+		text string
+		want record.Num
+	}{
+		{fill("device,vg_V,id_A,R_L (Ohm)", "10"), record.Known(10)},
+		{fill("device,vg_V,id_A,R_L (kΩ)", "1.5"), record.Known(1500)},
+		{fill("device,vg_V,id_A,RL", "4k7"), record.Known(4700)},
+		{fill("device,vg_V,id_A,RL", "big"), record.Num{}},
+	} {
+		if got := read(c.text, Options{}); got != c.want {
+			t.Errorf("%q: %s, want %s", c.text, got, c.want)
+		}
+	}
+	if got := read(fill("device,vg_V,id_A,RL", "10"), Options{Given: record.Condition{RL: record.Known(22)}}); got != record.Known(22) {
+		t.Errorf("the flag must win: %s", got)
 	}
 }

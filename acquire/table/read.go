@@ -127,29 +127,22 @@ func (r *reader) readAll(rd io.Reader, size int64) (*File, error) {
 	if size > limit {
 		return nil, r.tooLarge(size, limit)
 	}
-	head := make([]byte, headBytes)
-	n, err := io.ReadFull(rd, head)
-	head = head[:n]
-	if err != nil && err != io.EOF && err != io.ErrUnexpectedEOF {
+	room := int64(headBytes)
+	if size >= 0 {
+		room = size + 1 // one more, to see the end without growing
+	}
+	raw, err := readUpTo(rd, make([]byte, 0, room), headBytes)
+	if err != nil {
 		return nil, r.ioError(err)
 	}
-	if n == 0 {
+	if len(raw) == 0 {
 		return nil, r.refused(0, "it is empty")
 	}
-	if err := r.checkHead(head); err != nil {
+	if err := r.checkHead(raw[:min(len(raw), headBytes)]); err != nil {
 		return nil, err
 	}
-	var raw []byte
-	if size >= int64(n) {
-		raw = make([]byte, n, size+1)
-		copy(raw, head)
-	} else {
-		raw = append(make([]byte, 0, 4*headBytes), head...)
-	}
-	if n == headBytes {
-		if raw, err = readRest(rd, raw, limit); err != nil {
-			return nil, r.ioError(err)
-		}
+	if raw, err = readUpTo(rd, raw, limit+1); err != nil {
+		return nil, r.ioError(err)
 	}
 	if int64(len(raw)) > limit {
 		return nil, r.tooLarge(int64(len(raw)), limit)
@@ -157,14 +150,15 @@ func (r *reader) readAll(rd io.Reader, size int64) (*File, error) {
 	return r.read(raw)
 }
 
-// readRest reads on behind what buf holds, to the end or just beyond limit.
-func readRest(rd io.Reader, buf []byte, limit int64) ([]byte, error) {
-	for int64(len(buf)) <= limit {
+// readUpTo reads on behind what buf holds, until it holds n bytes or more or
+// the end is reached.
+func readUpTo(rd io.Reader, buf []byte, n int64) ([]byte, error) {
+	for int64(len(buf)) < n {
 		if len(buf) == cap(buf) {
 			buf = append(buf, 0)[:len(buf)]
 		}
-		n, err := rd.Read(buf[len(buf):cap(buf)])
-		buf = buf[:len(buf)+n]
+		k, err := rd.Read(buf[len(buf):cap(buf)])
+		buf = buf[:len(buf)+k]
 		if err == io.EOF {
 			break
 		}

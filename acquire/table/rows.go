@@ -59,7 +59,8 @@ func (w *rows) nextRow() bool {
 		w.r.file.Rows++
 		if w.r.opt.Progress != nil && w.pos-w.shown > 1<<20 {
 			w.shown = w.pos
-			w.r.opt.Progress(int64(w.pos), int64(len(w.text)))
+			size := w.r.file.Size // the text may be longer or shorter than the bytes it was decoded from
+			w.r.opt.Progress(int64(float64(w.pos)/float64(len(w.text))*float64(size)), size)
 		}
 		return true
 	}

@@ -129,6 +129,9 @@ func (r *reader) askUnits(open []*column) error {
 		}
 	}
 	hint := "--units " + strings.Join(flags, ",")
+	if r.layout == layoutWide && slices.Contains(flags, "id=A") {
+		hint += ", with vl=V or vd=V in place of id=A where the devices' columns are voltages"
+	}
 	what := "column"
 	if len(open) > 1 {
 		what = "columns"

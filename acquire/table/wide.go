@@ -44,23 +44,17 @@ func (r *reader) wideColumns(free []*column) error {
 	return nil
 }
 
-// wideByOption takes the quantity from --units or --map, when one of them names
-// one that the columns can be.
+// wideByOption takes the quantity from --units, when that names one that the
+// columns can be.
 func (r *reader) wideByOption() string {
-	for _, q := range []string{"id", "vl", "vd"} {
-		if _, ok := r.unitOption(q); ok {
-			if q != "id" && !r.givenExactly(q) {
-				return roleLoad
+	for _, q := range []string{"id", "vl", "vd", roleLoad} {
+		for given := range r.opt.Units {
+			if name, err := r.shortName(given); err == nil && name == q {
+				return q
 			}
-			return q
 		}
 	}
 	return ""
-}
-
-func (r *reader) givenExactly(q string) bool {
-	_, ok := r.opt.Units[q]
-	return ok
 }
 
 // cellsInVolts reports whether the cells themselves say volts.
