@@ -114,6 +114,18 @@ plain spot vg_v[2.6] id_a[10e-3]
 	}
 }
 
+// The row right below the header is no exception.
+func TestUnclosedQuoteBelowTheHeaderIsRefusedWithItsPlace(t *testing.T) {
+	text := "device,vg_V,id_A\n\n\"D1,2.8,0.001\nD1,2.9,0.01\nD1,3.0,0.02\nD1,3.1,0.05\nD1,3.2,0.08\nD1,3.3,0.1\n"
+	f, err := Read("t.csv", strings.NewReader(text), Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if f.Rows != 6 || f.Refused != 1 || f.Refusals[0].Line != 3 || f.Points != 5 {
+		t.Errorf("rows %d, refused %d %+v, points %d", f.Rows, f.Refused, f.Refusals, f.Points)
+	}
+}
+
 func TestUnclosedQuoteRefusesItsRowOnly(t *testing.T) {
 	f := mustRead(t, "x.csv", "device,vgs_at_10mA_V\nA,2\nB,2\nC,2\nD,2\n\"E,2\nF,2\nG,2\n", Options{})
 	if len(f.Sweeps) != 6 || f.Refused != 1 || f.Refusals[0].Line != 6 || !strings.Contains(f.Refusals[0].Reason, "never closed") {

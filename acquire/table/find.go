@@ -62,7 +62,8 @@ func (r *reader) findHeader() error {
 	if len(r.body) == 0 {
 		return r.refused(0, "it holds no rows of readings")
 	}
-	r.bodyLine = r.body[0].line
+	r.bodyLine, r.bodyStart = r.body[0].line, r.body[0].start
+	r.beginBehindHeader()
 	for _, s := range rows {
 		if s.comment && s.line < r.bodyLine && s.line != r.headerLine {
 			r.talk = append(r.talk, remarkLine{s.line, string(s.row[:min(len(s.row), maxTalk)])})
@@ -70,6 +71,28 @@ func (r *reader) findHeader() error {
 	}
 	slices.SortStableFunc(r.talk, func(a, b remarkLine) int { return a.line - b.line })
 	return nil
+}
+
+// beginBehindHeader moves the begin of the data to the first row behind header
+// and unit line. Rows that are no sample (a quote never closed, a row far too
+// long) are rows of the file all the same, to be refused with their place.
+func (r *reader) beginBehindHeader() {
+	if r.headerLine == 0 {
+		return
+	}
+	s := newSplitter(r.text, r.delim)
+	for s.next() && s.at < r.bodyLine {
+		if r.marks.is(s.row) || len(bytes.TrimSpace(s.row)) == 0 {
+			continue
+		}
+		if s.at > max(r.headerLine, r.unitLine) {
+			r.bodyLine, r.bodyStart = s.at, s.start
+			return
+		}
+		if len(s.row) <= maxLine {
+			s.split() // a quoted name may run over line ends
+		}
+	}
 }
 
 // headerCells gives the cells of a header in a file cut at blanks, where blanks

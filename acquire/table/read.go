@@ -47,6 +47,7 @@ type reader struct {
 	unitCells  []string
 	body       []sampled // rows of data in the head of the file
 	bodyLine   int       // where the data begins
+	bodyStart  int       // its place in the text
 	cols       []column
 	num        numeral
 	layout     string

@@ -23,7 +23,7 @@ func (r *reader) rowsOfData() *rows {
 // bodySplitter stands before the first row of data.
 func (r *reader) bodySplitter() splitter {
 	s := newSplitter(r.text, r.delim)
-	s.pos, s.line = r.body[0].start, r.bodyLine
+	s.pos, s.line = r.bodyStart, r.bodyLine
 	return s
 }
 
