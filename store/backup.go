@@ -74,11 +74,12 @@ func (db *DB) copyTo(ctx context.Context, part string, progress func(done, total
 			return err
 		}
 		for more := true; more; {
-			if err := ctx.Err(); err != nil {
-				return errors.Join(err, b.Finish())
+			if err = ctx.Err(); err == nil {
+				more, err = b.Step(backupPages)
 			}
-			if more, err = b.Step(backupPages); err != nil {
-				return errors.Join(err, b.Finish())
+			if err != nil {
+				_ = b.Finish() // it would tell the same again
+				return err
 			}
 			if progress != nil {
 				progress(b.PageCount()-b.Remaining(), b.PageCount())

@@ -343,8 +343,7 @@ func (db *DB) connectReaders(ctx context.Context, v url.Values) error {
 	if err != nil {
 		return err
 	}
-	r.SetMaxOpenConns(4)
-	r.SetMaxIdleConns(4)
+	r.SetMaxIdleConns(4) // more may be open: a view within a view must not wait for itself
 	if err := readable(ctx, r); err != nil {
 		return errors.Join(err, r.Close())
 	}

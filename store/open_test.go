@@ -245,6 +245,21 @@ func TestViewIsASnapshot(t *testing.T) {
 	})
 }
 
+func TestViewsWithinViews(t *testing.T) {
+	db := newStore(t)
+	lot, sweeps := fill(t, db)
+	var deeper func(n int)
+	deeper = func(n int) {
+		view(t, db, func(*Tx) {
+			if n > 0 {
+				deeper(n - 1)
+			}
+			holds(t, db, lot, sweeps)
+		})
+	}
+	soon(t, func() { deeper(8) })
+}
+
 func TestRemoveIfEmpty(t *testing.T) {
 	dir := t.TempDir()
 	path := filepath.Join(dir, "one", "two", "gatesill.db")

@@ -1,7 +1,14 @@
 // Package store keeps parts, lots, devices, sweeps, estimates and their audit
 // trail in one SQLite file. It is the only place with SQL.
 //
-// Raw readings are never changed or deleted, and it computes nothing: no
+// Everything happens in a transaction: [DB.View] reads one state of the store,
+// [DB.Update] writes all or nothing, and has written it to the disk when it
+// returns. Whoever edits says why; the old value stays in the audit trail. The
+// form of the file, for readers with nothing but an SQL client, is described in
+// migrations/0001.sql.
+//
+// It refuses to change or delete what was measured, to open a file that is not
+// its own, newer or damaged, and to overwrite a file. It computes nothing: no
 // statistics, no fits.
 package store
 

@@ -32,7 +32,9 @@ func (db *DB) View(ctx context.Context, f func(*Tx) error) error {
 		return wrap(db.path, err)
 	}
 	defer t.Rollback()
-	return db.explain(f(db.tx(ctx, t)))
+	err = f(db.tx(ctx, t))
+	_ = t.Rollback() // nothing was written
+	return db.explain(err)
 }
 
 // Update runs f in one write transaction. When it returns nil all of it is on
@@ -58,6 +60,7 @@ func (db *DB) Update(ctx context.Context, f func(*Tx) error) error {
 		return err
 	}
 	if err := f(db.tx(ctx, t)); err != nil {
+		_ = t.Rollback() // at the latest when the connection is closed
 		return db.explain(err)
 	}
 	return wrap(db.path, t.Commit())
@@ -212,7 +215,7 @@ type stamp struct{ to *string }
 
 // Scan checks the time as it reads it.
 func (s stamp) Scan(src any) error {
-	if err := (maybe{s.to}).Scan(src); err != nil {
+	if err := maybe(s).Scan(src); err != nil {
 		return err
 	}
 	return record.CheckStampOrDate("time", *s.to)
