@@ -23,7 +23,9 @@ type column struct {
 	above  []bool    // by device: never reaches the current; nil: none can
 	step   float64   // of the readings, 0: none seen
 	least  float64   // spread below which nothing is told apart: a microvolt, or a millionth of a gain
-	sorted []float64 // the finite x, ascending
+	usual  float64   // median of the u that are known; 0: none is
+	plain  []float64 // sign × v of the devices with a value, ascending
+	sorted []float64 // x of the devices with a value, ascending
 }
 
 // raw turns a value on the judged scale back into the unit of the quantity.
@@ -45,19 +47,19 @@ func (c *column) numAbove() int {
 	return n
 }
 
-// medianU is the median uncertainty of the values of which it is known, 0 where
-// none is.
-func (c *column) medianU() float64 {
-	var u []float64
-	for i, v := range c.u {
-		if v > 0 && !math.IsNaN(c.x[i]) {
-			u = append(u, v)
+// medianOf gives the median of the numbers above 0, 0 where there is none.
+func medianOf(u []float64) float64 {
+	var known []float64
+	for _, v := range u {
+		if v > 0 {
+			known = append(known, v)
 		}
 	}
-	if len(u) == 0 {
+	if len(known) == 0 {
 		return 0
 	}
-	return stats.Median(u)
+	slices.Sort(known)
+	return stats.MedianSorted(known)
 }
 
 // floorOf is the smallest robust spread that can be told from readings with that
@@ -68,31 +70,56 @@ func floorOf(step, u float64) float64 {
 	return math.Max(stats.MADScale*step/2, u)
 }
 
-// only is the column with the devices for which keep says no left out.
-func (c *column) only(keep func(i int) bool) *column {
+// without is the column with some devices left out.
+func (c *column) without(out []bool) *column {
 	d := *c
 	d.x = slices.Clone(c.x)
 	d.above = slices.Clone(c.above)
-	for i := range d.x {
-		if !keep(i) {
+	var gone []float64
+	for i, yes := range out {
+		if !yes {
+			continue
+		}
+		if d.above != nil {
+			d.above[i] = false
+		}
+		if !math.IsNaN(d.x[i]) {
+			gone = append(gone, d.x[i])
 			d.x[i] = math.NaN()
-			if d.above != nil {
-				d.above[i] = false
-			}
 		}
 	}
-	d.sort()
+	slices.Sort(gone)
+	d.sorted = make([]float64, 0, len(c.sorted))
+	for _, v := range c.sorted {
+		if len(gone) > 0 && v == gone[0] {
+			gone = gone[1:]
+		} else {
+			d.sorted = append(d.sorted, v)
+		}
+	}
+	d.plain = nil // only the whole lot is summed up
 	return &d
 }
 
-func (c *column) sort() {
-	c.sorted = make([]float64, 0, len(c.x))
-	for _, v := range c.x {
-		if !math.IsNaN(v) {
-			c.sorted = append(c.sorted, v)
+// order fills the sorted slices.
+func (c *column) order() {
+	c.plain = make([]float64, 0, len(c.x))
+	for i, x := range c.x {
+		if !math.IsNaN(x) {
+			c.plain = append(c.plain, c.sign*c.v[i])
 		}
 	}
-	slices.Sort(c.sorted)
+	slices.Sort(c.plain)
+	c.sorted = c.plain
+	if c.log {
+		c.sorted = make([]float64, len(c.plain))
+		for i, v := range c.plain {
+			c.sorted[i] = math.Log(math.Abs(v))
+		}
+		if len(c.plain) > 0 && c.plain[0] < 0 {
+			slices.Sort(c.sorted)
+		}
+	}
 }
 
 // isGain reports whether a quantity is a measure of drive strength.
@@ -130,7 +157,6 @@ func columnOf(devs []Device, k fit.Key, pchannel bool, step float64) *column {
 	if pchannel && !c.log {
 		c.sign = -1
 	}
-	var read []float64
 	for i := range devs {
 		c.x[i] = math.NaN()
 		if !counts(&devs[i]) {
@@ -148,22 +174,22 @@ func columnOf(devs []Device, k fit.Key, pchannel bool, step float64) *column {
 		if u > 0 && !math.IsInf(u, 0) {
 			c.u[i] = u
 		}
-		read = append(read, v)
 	}
+	c.order()
+	c.usual = medianOf(c.u)
+	c.step = step
 	if !(step > 0) || math.IsInf(step, 0) {
-		step = 0
+		c.step = 0
 		if k != KeySpan { // the step of a difference is that of its parts
-			step = stepOf(read)
+			c.step = stepOf(c.plain)
 		}
 	}
-	c.step = step
-	if c.log && step > 0 && len(read) > 0 {
-		c.step = step / math.Abs(stats.Median(read))
+	if c.log && c.step > 0 && len(c.plain) > 0 {
+		c.step /= math.Abs(stats.MedianSorted(c.plain))
 	}
 	if isThreshold(k) {
 		c.markAbove(devs)
 	}
-	c.sort()
 	return c
 }
 
@@ -187,13 +213,7 @@ func (c *column) summary() Summary {
 		s.Above = c.numAbove()
 		return s
 	}
-	plain := make([]float64, 0, len(c.x))
-	for i, v := range c.v {
-		if !math.IsNaN(c.x[i]) {
-			plain = append(plain, c.sign*v)
-		}
-	}
-	slices.Sort(plain)
+	plain := slices.Clone(c.plain)
 	s.Mean, s.SD = stats.MeanSD(plain)
 	s.Min, s.Max = plain[0], plain[s.N-1]
 	s.Above = c.numAbove()
@@ -202,7 +222,7 @@ func (c *column) summary() Summary {
 	}
 	s.Median = stats.MedianSorted(plain)
 	s.Step = c.step
-	u := c.medianU()
+	u := c.usual
 	if c.log {
 		s.Step *= math.Abs(s.Median)
 		u *= math.Abs(s.Median)

@@ -120,7 +120,7 @@ func center(c *column) band {
 	}
 	sd := stats.MADScale * stats.MADSorted(all)
 	if !math.IsNaN(sd) {
-		sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.medianU()))
+		sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.usual))
 	}
 	return band{n: len(c.sorted), mid: stats.MedianSorted(all), sd: sd, low: math.Inf(-1), high: math.Inf(1)}
 }
@@ -139,7 +139,7 @@ func (b *band) narrow(c *column, level float64) {
 	n := len(c.sorted)
 	lo, hi := stats.ESDInner(c.sorted, level, n/4)
 	mean, sd := stats.MeanSD(c.sorted[lo:hi])
-	sd = math.Max(math.Max(sd, c.least), math.Max(c.step/2, c.medianU()))
+	sd = math.Max(math.Max(sd, c.least), math.Max(c.step/2, c.usual))
 	left := float64(hi - lo)
 	reach := stats.UpperT(level/(2*(left+1)), left-1)*sd*math.Sqrt(1+1/left) + c.step/2
 	if low := mean - reach; low > b.low {
@@ -158,7 +158,7 @@ func (b *band) narrow(c *column, level float64) {
 // deviation of N values is about as good as a standard deviation of 0.37 N.
 func bandKnown(c *column, sd float64, devices int, k float64, quantities int) band {
 	b := center(c)
-	b.sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.medianU()))
+	b.sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.usual))
 	b.basis, b.k = BasisHistory, k
 	if k == 0 {
 		b.k = stats.UpperT(knownLevel/float64(2*max(b.n, 1)*quantities), 0.37*float64(devices))

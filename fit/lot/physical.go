@@ -56,16 +56,17 @@ func (r *leakRule) leaks(res *fit.Result) string {
 	if u := res.Idss.U; u > 0 {
 		sure -= 2 * u
 	}
+	if !(sure > r.limit || sure > r.lot) {
+		return warned(res, fit.CodeDrainLeakage)
+	}
 	is := fmt.Sprintf("drain leakage is %s with the gate off", engineering(size, "A"))
 	switch {
 	case sure > r.limit:
 		return fmt.Sprintf("%s, more than %s of %s", is, r.limitAs, engineering(r.limit, "A"))
-	case sure > r.lot && r.median > 0:
+	case r.median > 0:
 		return fmt.Sprintf("%s, %s times the lot's median of %s", is, short(size/r.median), engineering(r.median, "A"))
-	case sure > r.lot:
-		return is + ", where half of the lot shows none"
 	}
-	return warned(res, fit.CodeDrainLeakage)
+	return is + ", where half of the lot shows none"
 }
 
 // warned is the text of a fit's own warning of that code, "" where there is none.

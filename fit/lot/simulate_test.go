@@ -58,7 +58,7 @@ func simulateClean(n, runs int, draw func(*rand.Rand) float64) cleanLots {
 		}
 		slices.Sort(x)
 		c.score[r] = partingOf(x, 0, 0).score
-		b := center(&column{sorted: x})
+		b := center(&column{sorted: x, least: 1e-12})
 		c.farthest[r] = math.Max(b.mid-x[0], x[n-1]-b.mid) / b.sd
 		for q := range c.esd {
 			lo, hi := stats.ESDInner(x, esdLevel/float64(q+1), n/4)

@@ -48,8 +48,8 @@ func partingOf(sorted []float64, step, u float64) parting {
 		return none
 	}
 	score, apart := bestDivision(s, small, step, u)
-	if apart.distance < 3*apart.spread {
-		return none
+	if apart.at == 0 || apart.distance < 3*apart.spread {
+		return none // at 0: numbers too great to be squared
 	}
 	p, ok := valley(s, apart.at, small)
 	if !ok {
@@ -161,20 +161,20 @@ type twoGroups struct {
 	lower  []bool // by device
 	upper  []bool
 	nl, nu int
-	also   *column
+	also   *column // another quantity that parts it in the same way; nil: none
 }
 
-// minority reports which group is small enough to be the odd one: at most a
-// quarter of the devices. nil: neither.
-func (g *twoGroups) minority() []bool {
+// minority gives the group that is small enough to be the odd one, at most a
+// quarter of the devices, and the other; nil where neither is.
+func (g *twoGroups) minority() (odd, others []bool) {
 	n := g.nl + g.nu
 	switch {
 	case 4*g.nl <= n:
-		return g.lower
+		return g.lower, g.upper
 	case 4*g.nu <= n:
-		return g.upper
+		return g.upper, g.lower
 	}
-	return nil
+	return nil, nil
 }
 
 // findGroups parts the lot by the first column if that tells two populations,
@@ -187,7 +187,7 @@ func findGroups(cols []*column) *twoGroups {
 		if len(c.sorted) < 4 {
 			continue
 		}
-		p := partingOf(c.sorted, c.step, c.medianU())
+		p := partingOf(c.sorted, c.step, c.usual)
 		over := p.score - splitCritical(len(c.sorted), len(cols))
 		if !(over > 0) {
 			continue

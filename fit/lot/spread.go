@@ -3,6 +3,7 @@ package lot
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"gatesill/fit"
 )
@@ -52,11 +53,13 @@ type judge struct {
 	opt      SpreadOptions
 	sortedBy fit.Key
 	columns  map[fit.Key]*column
+	keys     []fit.Key // of columns, in order
 	family   []*column // quantities by which devices of one family are alike
 	groups   *twoGroups
 	odd      []bool // by device: in the small one of two populations; nil: none
+	oddWords string // what the two groups are, where one is odd
 	judged   []judged
-	centers  map[fit.Key]judged // for distances
+	centers  map[fit.Key]*judged // for distances
 	leak     leakRule
 }
 
@@ -70,10 +73,11 @@ func newJudge(devs []Device, opt SpreadOptions) *judge {
 	if !(opt.K > 0) || math.IsInf(opt.K, 0) {
 		opt.K = 0
 	}
-	l := &judge{devs: devs, opt: opt, columns: map[fit.Key]*column{}, centers: map[fit.Key]judged{}}
+	l := &judge{devs: devs, opt: opt, columns: map[fit.Key]*column{}, centers: map[fit.Key]*judged{}}
 	for _, k := range fit.Keys {
 		l.columns[k] = columnOf(devs, k, opt.PChannel, opt.Resolution[k])
 	}
+	l.keys = slices.Clone(fit.Keys)
 	l.sortedBy = opt.SortedBy
 	if l.columns[l.sortedBy] == nil {
 		l.sortedBy = fit.KeyVgsth
@@ -86,13 +90,13 @@ func newJudge(devs []Device, opt SpreadOptions) *judge {
 	l.family = l.familyColumns()
 	l.groups = findGroups(l.family)
 	if l.groups != nil {
-		l.odd = l.groups.minority()
+		l.findOdd()
 	}
 	l.setLimits()
-	for _, k := range fit.Keys {
+	for _, k := range l.keys {
 		c := l.columns[k]
 		if _, ok := l.centers[k]; !ok && len(c.sorted) > 0 {
-			l.centers[k] = judged{c, center(l.main(c))}
+			l.centers[k] = &judged{c, center(l.main(c))}
 		}
 	}
 	return l
@@ -143,6 +147,7 @@ func (l *judge) familyColumns() []*column {
 		span := columnOf(l.devs, KeySpan, l.opt.PChannel, step)
 		if len(span.sorted) > 0 {
 			l.columns[KeySpan] = span
+			l.keys = append(l.keys, KeySpan)
 			add(span)
 		}
 	}
@@ -166,7 +171,16 @@ func (l *judge) main(c *column) *column {
 	if l.odd == nil {
 		return c
 	}
-	return c.only(func(i int) bool { return !l.odd[i] })
+	return c.without(l.odd)
+}
+
+func (l *judge) findOdd() {
+	odd, others := l.groups.minority()
+	if odd != nil {
+		c := l.groups.col
+		l.odd = odd
+		l.oddWords = groupWords(c, odd) + ", the other " + groupWords(c, others)
+	}
 }
 
 // setLimits works out the limits of every quantity that can have some. In a lot
@@ -199,9 +213,8 @@ func (l *judge) limitBy(c *column, b band) {
 	if math.IsNaN(b.mid) || math.IsNaN(b.sd) {
 		return
 	}
-	j := judged{c, b}
-	l.judged = append(l.judged, j)
-	l.centers[c.key] = j
+	l.judged = append(l.judged, judged{c, b})
+	l.centers[c.key] = &judged{c, b}
 }
 
 // knownSD is the spread of a quantity from earlier lots on the judged scale, 0
@@ -223,21 +236,20 @@ func (l *judge) knownSD(c *column) float64 {
 
 func (l *judge) summaries() map[fit.Key]Summary {
 	out := map[fit.Key]Summary{}
-	for k, c := range l.columns {
-		out[k] = c.summary()
+	for _, k := range fit.Keys {
+		out[k] = l.columns[k].summary()
 	}
-	delete(out, KeySpan)
 	return out
 }
 
 // verdict of device i.
 func (l *judge) verdict(i int) Verdict {
 	d := &l.devs[i]
-	v := Verdict{Name: d.Name, Distance: map[fit.Key]float64{}}
-	for k, c := range l.columns {
+	v := Verdict{Name: d.Name, Distance: make(map[fit.Key]float64, len(l.keys))}
+	for _, k := range l.keys {
 		v.Distance[k] = math.NaN()
 		if j, ok := l.centers[k]; ok {
-			v.Distance[k] = j.band.distance(c, i)
+			v.Distance[k] = j.band.distance(l.columns[k], i)
 		}
 	}
 	if d.Control || d.Result.State == fit.Excluded {
@@ -260,7 +272,9 @@ func (l *judge) familyReasons(i int) []Reason {
 	if l.odd != nil {
 		whose = "the greater group's"
 		if l.odd[i] {
-			out = append(out, Reason{fit.CodeTwoPopulations, l.oddSentence(i)})
+			c := l.groups.col
+			out = append(out, Reason{fit.CodeTwoPopulations, fmt.Sprintf("%s of %s puts it with the smaller of two groups: %s",
+				nameOf(c.key), show(c.key, c.v[i]), l.oddWords)})
 		}
 	}
 	threshold, gain := l.farthest(i, isThreshold), l.farthest(i, isGain)
@@ -295,17 +309,6 @@ func (l *judge) spreads(j *judged) string {
 		return fmt.Sprintf("robust spreads, known from %d earlier devices,", l.opt.Known.Devices)
 	}
 	return "robust spreads"
-}
-
-func (l *judge) oddSentence(i int) string {
-	g := l.groups
-	c := g.col
-	small, great := g.lower, g.upper
-	if &l.odd[0] == &g.upper[0] {
-		small, great = great, small
-	}
-	return fmt.Sprintf("%s of %s puts it with the smaller of two groups: %s, the others %s",
-		nameOf(c.key), show(c.key, c.v[i]), groupWords(c, small), groupWords(c, great))
 }
 
 // evenWarning says why two populations of like size leave nothing flagged, and

@@ -60,16 +60,20 @@ func millivolts(v float64) string {
 
 // short writes three significant digits.
 func short(v float64) string {
-	a := math.Abs(v)
-	switch {
-	case a >= 100 && a < 1e9:
-		return fmt.Sprintf("%.0f", v)
-	case a >= 10 && a < 100:
-		return fmt.Sprintf("%.1f", v)
-	case a >= 1 && a < 10:
-		return fmt.Sprintf("%.2f", v)
+	e := strconv.FormatFloat(v, 'e', 2, 64) // rounds first: 99.99 has the digits of 100
+	r, err := strconv.ParseFloat(e, 64)
+	if err != nil {
+		return e
 	}
-	return strconv.FormatFloat(v, 'g', 3, 64)
+	switch a := math.Abs(r); {
+	case a >= 100 && a < 1e9:
+		return fmt.Sprintf("%.0f", r)
+	case a >= 10 && a < 100:
+		return fmt.Sprintf("%.1f", r)
+	case a >= 1 && a < 10:
+		return fmt.Sprintf("%.2f", r)
+	}
+	return strconv.FormatFloat(r, 'g', 3, 64)
 }
 
 // engineering writes three digits with a prefix.
@@ -137,8 +141,12 @@ func groupWords(c *column, in []bool) string {
 	n, low, high := 0, math.Inf(1), math.Inf(-1)
 	for i, yes := range in {
 		if yes {
+			v := c.v[i]
+			if c.log {
+				v = math.Abs(v)
+			}
 			n++
-			low, high = math.Min(low, c.v[i]), math.Max(high, c.v[i])
+			low, high = min(low, v), max(high, v)
 		}
 	}
 	return fmt.Sprintf("%d devices at %s to %s", n, show(c.key, low), show(c.key, high))
