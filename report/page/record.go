@@ -155,7 +155,7 @@ func (v *view) budget(k *known) {
 				return cell{Text: "not known", Right: true, None: true}
 			}
 			slices.Sort(x)
-			return number(twoDigits(x[len(x)/2], unit))
+			return number(report.FormatTwoDigits(x[len(x)/2], unit))
 		}
 		t.Rows = append(t.Rows, []cell{{Text: rich(k.KeyPhrase(key)), Head: true}, number(strconv.Itoa(len(within))), med(within), med(between), med(absolute)})
 	}

@@ -105,7 +105,7 @@ func (v *view) bins(k *known) {
 	}
 	note := "How narrow a bin may be is not known, because no uncertainty of the readings is known."
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {
-		note = fmt.Sprintf("A bin narrower than %s would sort noise (4 standard uncertainties of a device).", twoDigits(srt.SmallestWidth, report.KeyOf(srt.By).Unit))
+		note = fmt.Sprintf("A bin narrower than %s would sort noise (4 standard uncertainties of a device).", report.FormatTwoDigits(srt.SmallestWidth, report.KeyOf(srt.By).Unit))
 	}
 	t.Note = rich(note + " A device within 2 standard uncertainties of an edge names the bin across it as well.")
 	v.Bins = t

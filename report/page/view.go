@@ -240,7 +240,7 @@ func (v *view) summary(k *known) {
 		num := func(x float64) string { return sc.FormatNumber(x, se, 0) + " " + sc.Unit(unit) }
 		text := fmt.Sprintf("The median is %s", num(m.Median))
 		if !math.IsNaN(m.RobustSD) {
-			text += fmt.Sprintf(" with a robust standard deviation of %s", twoDigits(m.RobustSD, unit))
+			text += fmt.Sprintf(" with a robust standard deviation of %s", report.FormatTwoDigits(m.RobustSD, unit))
 		}
 		text += fmt.Sprintf(" (n = %d)", m.N)
 		if m.N > 1 {
@@ -251,7 +251,7 @@ func (v *view) summary(k *known) {
 			tile{"devices", strconv.Itoa(c.Devices), richf("%d with a value", c.Measured)},
 			tile{"flagged", strconv.Itoa(c.Flagged), richf("of %d", len(k.Spread.Devices))},
 			tile{"median", num(m.Median), rich(k.KeyPhrase(k.by))},
-			tile{"robust spread", twoDigits(m.RobustSD, unit), richf("1 sd, n = %d", m.N)})
+			tile{"robust spread", report.FormatTwoDigits(m.RobustSD, unit), richf("1 sd, n = %d", m.N)})
 	} else {
 		v.Lead = append(v.Lead, richf("No device has a value of %s.", k.KeyPhrase(k.by)))
 	}
@@ -313,15 +313,6 @@ func none(n int) string {
 		return "none"
 	}
 	return strconv.Itoa(n)
-}
-
-// twoDigits writes x with two significant digits and its unit.
-func twoDigits(x float64, unit string) string {
-	if math.IsNaN(x) || math.IsInf(x, 0) {
-		return report.NotAvailable
-	}
-	sc := report.ScaleOf(unit, x)
-	return strings.TrimSpace(sc.FormatNumber(x, math.Abs(x), 0) + " " + sc.Unit(unit))
 }
 
 // meter is one instrument as it was used in this lot.
