@@ -184,6 +184,21 @@ func FormatPlain(x, u float64, unit string) string {
 	return withUnit(text, s.Unit(unit))
 }
 
+// FormatTwoDigits writes x with two significant digits and its unit: an
+// uncertainty or another number that only tells a size.
+func FormatTwoDigits(x float64, unit string) string {
+	if !isNumber(x) {
+		return NotAvailable
+	}
+	s := ScaleOf(unit, x)
+	scaled := s.Of(x)
+	if math.Abs(scaled) >= 100 { // three digits before the mark: the third is not said
+		scaled = math.Round(scaled/10) * 10
+	}
+	d, _ := DecimalsFor(math.Abs(scaled))
+	return withUnit(fixed(scaled, d), s.Unit(unit))
+}
+
 // FormatGiven writes a number that was given, not measured, with all its
 // digits: "250 mA", "4.7 kΩ", "25 °C".
 func FormatGiven(x float64, unit string) string {

@@ -55,6 +55,22 @@ func TestFormatGiven(t *testing.T) {
 	check(12.02, "V", "12.02 V")
 }
 
+func TestFormatTwoDigits(t *testing.T) {
+	check := func(x float64, unit, want string) {
+		t.Helper()
+		if got := FormatTwoDigits(x, unit); got != want {
+			t.Errorf("%g %s: %q, want %q", x, unit, got, want)
+		}
+	}
+	check(0.000561, "V", "560 µV")
+	check(0.0011, "V", "1.1 mV")
+	check(0.001, "V", "1.0 mV")
+	check(0.053, "V", "53 mV")
+	check(0.104, "V", "100 mV")
+	check(0, "V", "0 V")
+	check(math.NaN(), "V", "n/a")
+}
+
 func TestFormatQuantity(t *testing.T) {
 	q := fit.Quantity{Value: 2.78012, U: 0.00052, N: 4}
 	if got := FormatQuantity(q, "V"); got != "2.78012 ± 0.00052 V (n = 4)" {

@@ -27,7 +27,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	p.grid(binGrid(srt, style))
 	p.line("")
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {
-		wrapped(p, "", "  ", "A bin narrower than "+twoDigits(srt.SmallestWidth, unit)+" would sort noise (4 standard uncertainties of a device).", style.Width)
+		wrapped(p, "", "  ", "A bin narrower than "+FormatTwoDigits(srt.SmallestWidth, unit)+" would sort noise (4 standard uncertainties of a device).", style.Width)
 	} else {
 		wrapped(p, "", "", "How narrow a bin may be is not known: no uncertainty of the readings is known.", style.Width)
 	}
@@ -48,12 +48,6 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 		}
 	}
 	return p.err
-}
-
-// twoDigits writes x with two significant digits and its unit.
-func twoDigits(x float64, unit string) string {
-	sc := ScaleOf(unit, x)
-	return withUnit(sc.FormatNumber(x, x, 0), sc.Unit(unit))
 }
 
 // Unsorted lists the devices in no bin, in the order of the lot: those that the

@@ -100,10 +100,11 @@
   shown = undefined;
   show(null);
 
-  // Sorting: a button in every head.
+  // Sorting: a button in every head but those of counts.
   const natural = new Intl.Collator("en", { numeric: true });
   const body = table.tBodies[0];
   heads.forEach((head, col) => {
+    if (head.classList.contains("n")) return; // a count beside its number
     const button = document.createElement("button");
     button.type = "button";
     button.append(...head.childNodes);

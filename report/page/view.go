@@ -29,13 +29,14 @@ type view struct {
 	Strip      *figure
 	Spread     *table
 	Limits     *table
+	Groups     []group // the two populations, where there are two
 	Bins       *table
 	Unsorted   []named
 	Devices    deviceTable
 	Flags      []named
 	FlagCount  string
 	LeftOut    *table
-	Remarks    []report.RemarkGroup
+	Remarks    []remark
 	Conditions *table
 	Meters     *table
 	Sessions   *table
@@ -74,6 +75,29 @@ type named struct {
 	Name  string
 	Texts []template.HTML
 	Codes []string
+}
+
+// group is one of two populations.
+type group struct {
+	Head  template.HTML
+	Names string
+}
+
+// remark is one warning with the devices it holds for.
+type remark struct {
+	Code    string
+	Who     string
+	Meaning template.HTML
+	Next    template.HTML
+	Names   string // "" when it holds for all
+}
+
+func newRemark(g report.RemarkGroup) remark {
+	r := remark{Code: report.Clean(g.Code), Who: "every measured device", Meaning: rich(g.Meaning), Next: rich(g.Next)}
+	if !g.All {
+		r.Who, r.Names = plural(len(g.Devices), "device"), report.Clean(strings.Join(g.Devices, ", "))
+	}
+	return r
 }
 
 type cell struct {
@@ -149,7 +173,9 @@ func newView(s *report.Sheet) *view {
 	v.devices(k)
 	v.flags(k)
 	v.leftOut(k)
-	v.Remarks = s.RemarkGroups()
+	for _, g := range s.RemarkGroups() {
+		v.Remarks = append(v.Remarks, newRemark(g))
+	}
 	v.circumstances(k)
 	v.facts(k)
 	v.rules(k)
@@ -214,7 +240,7 @@ func (v *view) summary(k *known) {
 		num := func(x float64) string { return sc.FormatNumber(x, se, 0) + " " + sc.Unit(unit) }
 		text := fmt.Sprintf("The median is %s", num(m.Median))
 		if !math.IsNaN(m.RobustSD) {
-			text += fmt.Sprintf(" with a robust standard deviation of %s", twoDigits(m.RobustSD, unit))
+			text += fmt.Sprintf(" with a robust standard deviation of %s", report.FormatTwoDigits(m.RobustSD, unit))
 		}
 		text += fmt.Sprintf(" (n = %d)", m.N)
 		if m.N > 1 {
@@ -225,7 +251,7 @@ func (v *view) summary(k *known) {
 			tile{"devices", strconv.Itoa(c.Devices), richf("%d with a value", c.Measured)},
 			tile{"flagged", strconv.Itoa(c.Flagged), richf("of %d", len(k.Spread.Devices))},
 			tile{"median", num(m.Median), rich(k.KeyPhrase(k.by))},
-			tile{"robust spread", twoDigits(m.RobustSD, unit), richf("1 sd, n = %d", m.N)})
+			tile{"robust spread", report.FormatTwoDigits(m.RobustSD, unit), richf("1 sd, n = %d", m.N)})
 	} else {
 		v.Lead = append(v.Lead, richf("No device has a value of %s.", k.KeyPhrase(k.by)))
 	}
@@ -289,15 +315,6 @@ func none(n int) string {
 	return strconv.Itoa(n)
 }
 
-// twoDigits writes x with two significant digits and its unit.
-func twoDigits(x float64, unit string) string {
-	if math.IsNaN(x) || math.IsInf(x, 0) {
-		return report.NotAvailable
-	}
-	sc := report.ScaleOf(unit, x)
-	return strings.TrimSpace(sc.FormatNumber(x, math.Abs(x), 0) + " " + sc.Unit(unit))
-}
-
 // meter is one instrument as it was used in this lot.
 type meter struct {
 	record.Instrument
@@ -309,16 +326,13 @@ type meter struct {
 // first use.
 func instruments(s *report.Sheet) []meter {
 	var list []meter
-	at := map[string]int{}
 	for i := range s.Devices {
 		for j := range s.Devices[i].Sweeps {
 			sw := &s.Devices[i].Sweeps[j]
 			for _, m := range sw.Instruments {
-				key := fmt.Sprintf("%q %q %q %q %q %v", m.Role, m.Name, m.Serial, m.Calibrated, m.Due, m.Ranges)
-				n, ok := at[key]
-				if !ok {
+				n := slices.IndexFunc(list, func(x meter) bool { return sameMeter(x.Instrument, m) })
+				if n < 0 {
 					n = len(list)
-					at[key] = n
 					list = append(list, meter{Instrument: m})
 				}
 				list[n].sweeps++
@@ -330,6 +344,12 @@ func instruments(s *report.Sheet) []meter {
 		}
 	}
 	return list
+}
+
+// sameMeter reports whether two instruments are shown alike.
+func sameMeter(a, b record.Instrument) bool {
+	return a.Role == b.Role && a.Name == b.Name && a.Serial == b.Serial && a.Coverage == b.Coverage &&
+		a.Calibrated == b.Calibrated && a.Due == b.Due && slices.Equal(a.Ranges, b.Ranges)
 }
 
 var isoDay = regexp.MustCompile(`^\d{4}-\d\d-\d\d`)
