@@ -31,7 +31,7 @@ func TestHeadings(t *testing.T) {
 		{"Spannung [V]", roleVolt, "V"}, {"Strom [mA]", roleAmp, "mA"}, {"V", roleVolt, "V"}, {"mA", roleAmp, "mA"}, {"°C", "temp", "°C"},
 		// Device and other texts.
 		{"device", "device", ""}, {"DUT", "device", ""}, {"Serial No.", "device", ""}, {"Nr.", "device", ""}, {"No", "device", ""}, {"№", "device", ""}, {"#", "device", ""}, {"Bauteil", "device", ""},
-		{"Prüfling", "device", ""}, {"Pruefling", "device", ""}, {"PRÜFLING-NR.", "device", ""}, {"échantillon", "device", ""}, {"Echantillon", "device", ""}, {"muestra", "device", ""}, {"campione", "device", ""}, {"próbka", "device", ""}, {"part", "device", ""},
+		{"Prüfling", "device", ""}, {"Pruefling", "device", ""}, {"PRÜFLING-NR.", "device", ""}, {"échantillon", "device", ""}, {"Echantillon", "device", ""}, {"muestra", "device", ""}, {"campione", "device", ""}, {"próbka", "device", ""}, {"part", "device", ""}, {"Device Name", "device", ""}, {"DUT-ID", "device", ""}, {"Lot Name", "lot", ""},
 		{"Lot", "lot", ""}, {"Charge", "lot", ""}, {"batch no", "lot", ""}, {"charge (V)", roleLoad, "V"},
 		{"Gehäuse", "package", ""}, {"Side", "side", ""}, {"Datum", "date", ""}, {"fecha", "date", ""}, {"Bediener", "operator", ""}, {"Prüfer", "operator", ""}, {"jig", "fixture", ""},
 		{"date code", "date-code", ""}, {"Aufdruck", "marking", ""}, {"R_L (Ω)", "rl", "Ω"},

@@ -139,21 +139,36 @@ func (r *reader) dropSpots(gates []*column) {
 }
 
 // isCounter reports whether a column headed 'no.' numbers the readings of one
-// sweep and not the devices: it counts up by one while the gate goes one way.
+// sweep and not the devices: it counts up by one while the gate goes one way,
+// and the current with it. In a list of devices it does not, but by chance in a
+// very short one.
 func (r *reader) isCounter(c *column) bool {
 	gate := r.first("vg")
-	if c.rank != weaker || c.how != "header" || !c.counting || len(r.body) < 6 || gate == nil {
+	if c.rank != weaker || c.how != "header" || !c.counting || gate == nil {
 		return false
 	}
-	rows := r.body
-	var vg []float64
-	for _, n := range []numeral{{mark: '.'}, {mark: ','}} {
-		vg = columnValues(rows, gate.index, n)
-		if len(vg) > len(rows)/2 {
-			break
+	vg := r.sampleValues(gate)
+	if len(vg) < 3 {
+		return false
+	}
+	if id := r.first("id"); id != nil {
+		i := r.sampleValues(id)
+		way, ok := monotone(vg, 1)
+		same, also := monotone(i, 1)
+		if ok && also && way == same && len(i) == len(vg) && spanOf(vg) > 0 && spanOf(i) > greatest(i)/2 {
+			return true
 		}
 	}
 	return len(vg) >= 6*len(passes(vg, 1))
+}
+
+// sampleValues reads a column of the sample before the decimal mark is known.
+func (r *reader) sampleValues(c *column) []float64 {
+	v := columnValues(r.body, c.index, numeral{mark: '.'})
+	if w := columnValues(r.body, c.index, numeral{mark: ','}); len(w) > len(v) {
+		return w
+	}
+	return v
 }
 
 // columnValues reads a column of the sample, leaving out what is no number.

@@ -50,6 +50,12 @@ D1 up vg_v[2,3,4] id_a[0.1,0.2,0.3]`},
 2 spot vg_v[2.6] id_a[0.01]`},
 		{"no. counts the readings", "D7.csv", "Nr.;U_GS [V];I_D [A]\n1;2,0;0,1\n2;2,2;0,2\n3;2,4;0,3\n4;2,6;0,4\n5;2,8;0,5\n6;3,0;0,6\n", Options{}, "per-device", `
 D7 up vg_v[2.0,2.2,2.4,2.6,2.8,3.0] id_a[0.1,0.2,0.3,0.4,0.5,0.6]`},
+		{"no. counts few readings", "D7.csv", "Nr.;U_GS [V];I_D [A]\n1;2,0;0,1\n2;2,2;0,2\n3;2,4;0,9\n", Options{}, "per-device", `
+D7 up vg_v[2.0,2.2,2.4] id_a[0.1,0.2,0.9]`},
+		{"no. numbers few devices", "x.csv", "Nr.;U_GS [V];I_D [A]\n1;2,0;0,011\n2;2,2;0,010\n3;2,4;0,009\n", Options{}, "spot", `
+1 spot vg_v[2.0] id_a[0.011]
+2 spot vg_v[2.2] id_a[0.010]
+3 spot vg_v[2.4] id_a[0.009]`},
 		{"no. numbers the devices", "x.csv", "Nr.;U_GS [V];I_D [A]\n1;2,9;0,01\n2;2,2;0,01\n3;2,7;0,01\n4;2,6;0,01\n5;2,8;0,01\n6;2,0;0,01\n", Options{}, "spot", `
 1 spot vg_v[2.9] id_a[0.01]
 2 spot vg_v[2.2] id_a[0.01]
@@ -297,6 +303,7 @@ func TestWithoutHeader(t *testing.T) {
 2 spot vg_v[2.94] id_a[0.01]`)
 	checkShow(t, mustRead(t, "D3.txt", "2.0 V;1 mA\n2.5 V;7 mA\n3.0 V;20 mA\n", Options{}), "D3 up vg_v[2.0,2.5,3.0] id_a[1e-3,7e-3,20e-3]")
 	wantError(t, "x.csv", "D1,2.0,0.001,1\nD1,2.1,0.010,1\n", Options{Units: units}, ErrAmbiguous, "no header", "--map device=1,vg=2,id=3")
+	wantError(t, "x.csv", "Q1,2.01\nQ2,2.05\n", Options{Units: units}, ErrAmbiguous, "no header", "--spot-current")
 	// Current before voltage: the even steps stand in the second column.
 	wantError(t, "x.csv", "0.001,2.0\n0.010,2.1\n0.050,2.2\n0.120,2.3\n0.210,2.4\n0.400,2.5\n", Options{Units: units}, ErrAmbiguous, "no header", "--map")
 }

@@ -44,7 +44,11 @@ func (r *reader) placeColumns(claimed map[string]bool) error {
 		r.note("the file has no header: column %s is taken for the gate voltage, since it goes in even steps, and column %s for %s", free[0].title(), free[1].title(), free[1].as)
 		return nil
 	}
-	return r.ambiguous(0, "--map device=1,vg=2,id=3", "the file has no header, and its %d columns do not tell what they are", len(r.cols))
+	hint := "--map device=1,vg=2,id=3"
+	if len(free) == 1 && len(texts) <= 1 && !spot {
+		hint = "--spot-current 10mA"
+	}
+	return r.ambiguous(0, hint, "the file has no header, and its %d columns do not tell what they are", len(r.cols))
 }
 
 // byCellUnits takes columns whose cells carry units for what the units say,

@@ -133,8 +133,8 @@ func fold(s string) string {
 	return b.String()
 }
 
-// lookup finds the role of a header name; words like 'measured' and 'set' behind
-// the name are taken off.
+// lookup finds the role of a header name; words like 'measured', 'number' and
+// 'set' behind the name are taken off.
 func lookup(name string) (word, bool) {
 	f := fold(name)
 	if w, ok := words[f]; ok {
@@ -143,6 +143,13 @@ func lookup(name string) (word, bool) {
 	for _, tail := range []string{"measured", "meas", "reading", "read", "actual", "gemessen", "messwert", "ist", "mesure", "mesuree", "medida", "medido", "misurata", "misurato", "gemeten", "avg", "mean"} {
 		if head, ok := strings.CutSuffix(f, tail); ok {
 			if w, ok := words[head]; ok {
+				return w, true
+			}
+		}
+	}
+	for _, tail := range []string{"name", "number", "nummer", "num", "no", "nr", "id", "code"} {
+		if head, ok := strings.CutSuffix(f, tail); ok {
+			if w, ok := words[head]; ok && dimOf(w.role) == "" && w.rank < weaker {
 				return w, true
 			}
 		}
