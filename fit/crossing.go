@@ -22,7 +22,10 @@ const (
 	// uncertainty. Both chosen on self-made curves (TestUncertaintyIsHonest) and
 	// tried on the simulator's (TestOutsideUncertainty).
 	agreeing  = 1.2
-	skewShare = 0.6
+	skewShare = 0.8
+	// boundShare is the share of the distance between two bounds that counts as
+	// uncertainty: more than a rectangle's, for a square law lies on the bound.
+	boundShare = 0.4
 )
 
 // crossing is the gate voltage at which the curve reaches a current.
@@ -156,7 +159,8 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 	c.v, c.gm, c.n = best.v, best.gm, best.n
 	c.u = best.u
 	if other.ok() {
-		c.u = math.Hypot(best.u, (best.v-other.v)/2)
+		// Where one of the two is straight the other tells nothing.
+		c.u = math.Hypot(best.u, math.Min(math.Abs(best.v-other.v)/2, best.bend))
 	}
 	c.u = math.Hypot(c.u, skewShare*best.skew)
 	return true
@@ -362,10 +366,8 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 	c.v = (lo + hi) / 2
 	c.n = 2
 	c.gm = 2 * math.Sqrt(iref) * (math.Sqrt(b.i) - math.Sqrt(math.Max(a.i, 0))) / (b.vg - a.vg)
-	t := (c.v - a.vg) / (b.vg - a.vg)
-	sa := math.Hypot(math.Hypot(e, a.ux), a.u/c.gm)
-	sb := math.Hypot(math.Hypot(e, b.ux), b.u/c.gm)
-	c.u = math.Hypot((hi-lo)/math.Sqrt(12), math.Hypot((1-t)*sa, t*sb))
+	single := math.Hypot(math.Hypot(e, b.ux), b.u/c.gm)
+	c.u = math.Hypot(boundShare*(hi-lo), single)
 }
 
 // atFirst reads the first point itself, which carries the current within a
