@@ -65,7 +65,11 @@ func (w *work) clean() {
 	w.dropSpikes()
 	w.mergeEqual()
 	for j := range w.pts {
-		w.pts[j].vds = w.drainVoltage(&w.pts[j])
+		p := &w.pts[j]
+		p.vds = w.drainVoltage(p)
+		if p.i > 0 {
+			p.rt, p.ln = math.Sqrt(p.i), math.Log(p.i)
+		}
 	}
 	w.tellLeftOut()
 }

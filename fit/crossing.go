@@ -148,10 +148,11 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 		w.beforeCorner(c, iref, e)
 		return true
 	}
+	o := root
 	best := w.grow(root, b, lo, hi, iref, e)
 	other := w.grow(logarithm, b, lo, hi, iref, e)
 	if other.ok() && (!best.ok() || other.bend < best.bend) {
-		best, other = other, best
+		best, other, o = other, best, logarithm
 	}
 	if !best.ok() {
 		return false
@@ -160,9 +161,9 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 	c.u = best.u
 	if other.ok() {
 		// Where one of the two is straight the other tells nothing.
-		c.u = math.Hypot(best.u, math.Min(math.Abs(best.v-other.v)/2, best.bend))
+		c.u = rss(best.u, math.Min(math.Abs(best.v-other.v)/2, best.bend))
 	}
-	c.u = math.Hypot(c.u, skewShare*best.skew)
+	c.u = rss(c.u, skewShare*w.leaning(o, best, e))
 	return true
 }
 
@@ -177,16 +178,17 @@ func (w *work) beforeCorner(c *crossing, iref, e float64) {
 	early, late := a.vg+(y-ya)/math.Max(rise, chord), a.vg+(y-ya)/chord
 	c.v, c.n = (early+late)/2, 3
 	c.gm = 2 * y * (rise + chord) / 2
-	single := math.Hypot(math.Hypot(e, a.ux), a.u/c.gm)
-	c.u = math.Hypot((late-early)/math.Sqrt(12), single)
+	single := rss(rss(e, a.ux), a.u/c.gm)
+	c.u = rss((late-early)/math.Sqrt(12), single)
 }
 
 // estimate is one reading of the crossing by a local polynomial.
 type estimate struct {
 	v, u, gm float64
-	skew     float64 // V, between the parabolas leaning to either side
 	bend     float64 // V, how far the narrowest polynomial lies from the chord
 	n        int
+	s        float64 // slope of the ordinate there
+	lo, hi   int     // window
 }
 
 func (e estimate) ok() bool { return e.n > 0 && !math.IsNaN(e.v) }
@@ -198,7 +200,7 @@ func (w *work) reach(a, b int, iref float64) (lo, hi int) {
 	for lo > 0 && b-lo < windowSide {
 		p, q := &w.pts[lo-1], &w.pts[lo]
 		if !p.above() || p.vg >= q.vg || p.i*windowRatio < iref && a-lo >= 1 ||
-			math.Log(q.i/p.i) > steepest*(q.vg-p.vg)+6*p.u/p.i {
+			q.ln-p.ln > steepest*(q.vg-p.vg)+6*p.u/p.i {
 			break
 		}
 		lo--
@@ -220,8 +222,8 @@ func (w *work) grow(o ordinate, b, lo, hi int, iref, e float64) (best estimate) 
 	a := b - 1
 	pa, pb := &w.pts[a], &w.pts[b]
 	y := o.of(iref)
-	slope := (o.of(pb.i) - o.of(pa.i)) / (pb.vg - pa.vg)
-	chord := pa.vg + (y-o.of(pa.i))/slope
+	slope := (o.at(pb) - o.at(pa)) / (pb.vg - pa.vg)
+	chord := pa.vg + (y-o.at(pa))/slope
 	var win window
 	least, most := math.Inf(-1), math.Inf(1)
 	for side := 2; ; side++ {
@@ -256,9 +258,8 @@ func (w *work) solveWindow(win *window, o ordinate, b int, y, slope, e float64) 
 	for j := range m {
 		p := &w.pts[win.lo+j]
 		win.x[j] = p.vg
-		win.y[j] = o.of(p.i)
-		sx := slope * math.Hypot(e, p.ux)
-		win.sigma[j] = math.Hypot(p.u*o.slope(p.i), sx)
+		win.y[j] = o.at(p)
+		win.sigma[j] = rss(p.u*o.slopeAt(p), slope*rss(e, p.ux))
 	}
 	var wt []float64
 	if win.sigma[0] > 0 {
@@ -286,41 +287,38 @@ func (w *work) solveWindow(win *window, o ordinate, b int, y, slope, e float64) 
 		return estimate{}
 	}
 	u := win.p.scatter(v, win.sigma[:m], false) / s
-	skew := win.leaning(v, m, degree-1, wt) / s
-	i := w.back(o, y)
-	return estimate{v: v, u: u, skew: skew, gm: s / o.slope(i), n: m}
+	i := o.back(y)
+	return estimate{v: v, u: u, gm: s / o.slope(i), n: m, lo: win.lo, hi: win.hi, s: s}
 }
 
-// leaning is the difference at v, in the ordinate, of two polynomials that lack
-// a quarter of the points at one end each: what a bend within the window, or a
-// knee sharper than its points can show, may be wrong by.
-func (win *window) leaning(v float64, m, degree int, wt []float64) float64 {
-	cut := max(1, m/4)
+// leaning is the difference, in volts, of two polynomials that lack a quarter of
+// the window's points at one end each: what a bend within the window, or a knee
+// sharper than its points can show, may be wrong by.
+func (w *work) leaning(o ordinate, g estimate, e float64) float64 {
+	m := g.hi - g.lo
+	cut, degree := max(1, m/4), min(2, m-2)
 	if degree < 1 || m-cut <= degree {
 		return 0
 	}
-	var wl, wr []float64
-	if wt != nil {
-		wl, wr = wt[:m-cut], wt[cut:]
+	var x, y, wt [2*windowSide + 2]float64
+	for j := range m {
+		p := &w.pts[g.lo+j]
+		x[j], y[j] = p.vg, o.at(p)
+		s := rss(p.u*o.slopeAt(p), g.s*rss(e, p.ux))
+		wt[j] = 1
+		if s > 0 {
+			wt[j] = 1 / (s * s)
+		}
 	}
-	var l, r poly
-	if !l.fit(win.x[:m-cut], win.y[:m-cut], wl, degree) || !r.fit(win.x[cut:m], win.y[cut:m], wr, degree) {
+	if !w.poly.fit(x[:m-cut], y[:m-cut], wt[:m-cut], degree) {
 		return 0
 	}
-	vl, _ := l.at(v)
-	vr, _ := r.at(v)
-	return math.Abs(vl - vr)
-}
-
-// back is the current of an ordinate.
-func (w *work) back(o ordinate, y float64) float64 {
-	switch o {
-	case root:
-		return y * y
-	case logarithm:
-		return math.Exp(y)
+	left, _ := w.poly.at(g.v)
+	if !w.poly.fit(x[cut:m], y[cut:m], wt[cut:m], degree) {
+		return 0
 	}
-	return y
+	right, _ := w.poly.at(g.v)
+	return math.Abs(left-right) / g.s
 }
 
 // bounds takes the middle of what a transfer curve must keep where the points
@@ -366,15 +364,15 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 	c.v = (lo + hi) / 2
 	c.n = 2
 	c.gm = 2 * math.Sqrt(iref) * (math.Sqrt(b.i) - math.Sqrt(math.Max(a.i, 0))) / (b.vg - a.vg)
-	single := math.Hypot(math.Hypot(e, b.ux), b.u/c.gm)
-	c.u = math.Hypot(boundShare*(hi-lo), single)
+	single := rss(rss(e, b.ux), b.u/c.gm)
+	c.u = rss(boundShare*(hi-lo), single)
 }
 
 // atFirst reads the first point itself, which carries the current within a
 // percent or two counts, corrected by the slope to the next.
 func (w *work) atFirst(c *crossing, iref, e float64) {
 	p := &w.pts[0]
-	c.v, c.n, c.u = p.vg, 1, math.Hypot(e, p.ux)
+	c.v, c.n, c.u = p.vg, 1, rss(e, p.ux)
 	if len(w.pts) < 2 {
 		return
 	}
@@ -385,7 +383,7 @@ func (w *work) atFirst(c *crossing, iref, e float64) {
 	s := (math.Sqrt(q.i) - math.Sqrt(p.i)) / (q.vg - p.vg)
 	c.gm = 2 * math.Sqrt(iref) * s
 	c.v += (math.Sqrt(iref) - math.Sqrt(p.i)) / s
-	c.u = math.Hypot(c.u, p.u/c.gm)
+	c.u = rss(c.u, p.u/c.gm)
 }
 
 // extend reads a current below three counts off the curve above it, by a
@@ -421,10 +419,10 @@ func (w *work) extend(c *crossing, iref float64) {
 	c.gm = 2 * target * slope
 	e := w.scatterNear(f)
 	for j := range m {
-		s[j] = math.Hypot(s[j], slope*e)
+		s[j] = rss(s[j], slope*e)
 	}
 	// The part beyond the points may bend: a quarter of it is doubtful.
-	c.u = math.Hypot(p.scatter(v, s[:m], false)/slope, math.Max(0, x[0]-v)/4)
+	c.u = rss(p.scatter(v, s[:m], false)/slope, math.Max(0, x[0]-v)/4)
 }
 
 // judgeGrid decides whether the points near the crossing lie too far apart for

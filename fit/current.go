@@ -157,7 +157,7 @@ func (w *work) mismatchLimit(i float64) float64 {
 	if math.IsNaN(a) || math.IsNaN(l) {
 		return unstatedMismatch
 	}
-	return math.Max(0.01, 3*math.Hypot(a, l))
+	return math.Max(0.01, 3*rss(a, l))
 }
 
 // loadIsFiner decides whose scale is kept: the one with the smaller stated
@@ -180,9 +180,9 @@ func (w *work) relative(i float64, onLoad bool) float64 {
 		// The difference of two readings of one meter: both near V_DD.
 		ranges = w.s.Drain
 		u := rangeFor(ranges, w.vdd).absolute(w.vdd)
-		return math.Hypot(math.Sqrt2*u/math.Abs(v), w.s.RLTol/math.Sqrt(3))
+		return rss(math.Sqrt2*u/math.Abs(v), w.s.RLTol/math.Sqrt(3))
 	}
-	return math.Hypot(rangeFor(ranges, v).absolute(v)/math.Abs(v), w.s.RLTol/math.Sqrt(3))
+	return rss(rangeFor(ranges, v).absolute(v)/math.Abs(v), w.s.RLTol/math.Sqrt(3))
 }
 
 // both gives the two currents of a point on the scale that is kept.
@@ -220,7 +220,7 @@ func (w *work) pickCurrents() (disputed int) {
 // agree allows four standard deviations of the last digits, a count each for
 // offsets, and 2 % for noise and heating of R_L.
 func (w *work) agree(p *point, a, l float64) bool {
-	u := math.Hypot(random(p.qa, p.na), random(p.ql, p.nl))
+	u := rss(random(p.qa, p.na), random(p.ql, p.nl))
 	return math.Abs(a-l) <= 4*u+p.qa+p.ql+0.02*math.Max(math.Abs(a), math.Abs(l))+2*w.supplyDoubt()
 }
 
@@ -249,7 +249,7 @@ func (w *work) mix(p *point, a, l float64) {
 	wa := vl / (va + vl)
 	wl := 1 - wa
 	p.i = wa*a + wl*l
-	p.u = math.Hypot(wa*ua, wl*ul)
+	p.u = rss(wa*ua, wl*ul)
 	p.q = p.ql
 	if wa > wl {
 		p.q = p.qa

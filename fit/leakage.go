@@ -53,7 +53,7 @@ func (w *work) leakage(r *Result) {
 	}
 	u := math.Max(math.Sqrt(uu)/float64(n), q/math.Sqrt(12*float64(n)))
 	abs := w.relativeUsed(math.Max(math.Abs(i), q)) * math.Max(math.Abs(i), q)
-	r.Idss = Quantity{Value: w.sign * i, U: u, UBetween: math.NaN(), UAbsolute: math.Hypot(u, abs), N: n}
+	r.Idss = Quantity{Value: w.sign * i, U: u, UBetween: math.NaN(), UAbsolute: rss(u, abs), N: n}
 	w.judgeLeakage(i, q, abs)
 }
 

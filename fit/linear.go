@@ -98,7 +98,7 @@ func (w *work) resistiveCurve() (*resistive, bool) {
 	}
 	// The scatter of a conductance holds that of the gate voltage.
 	for j := range n {
-		r.u[j] = math.Hypot(r.u[j], r.top*r.e[j])
+		r.u[j] = rss(r.u[j], r.top*r.e[j])
 	}
 	return r, true
 }

@@ -187,7 +187,7 @@ func (w *work) rootLine(use []int) (line, bool) {
 		for k := range m {
 			p := &w.pts[from+k]
 			x[k], y[k] = p.vg, math.Sqrt(math.Max(0, p.i))
-			sigma[k] = math.Hypot(p.u*root.slope(math.Max(p.i, p.floor())), rise*math.Hypot(e, p.ux))
+			sigma[k] = rss(p.u*root.slope(math.Max(p.i, p.floor())), rise*rss(e, p.ux))
 		}
 		return layLine(x, y, sigma, from)
 	}
@@ -244,6 +244,6 @@ func (w *work) gateQuantity(v, u, ofCurrent float64, n int) Quantity {
 	abs := rangeFor(w.s.Gate, v).absolute(v)
 	return Quantity{
 		Value: w.sign * v, U: u, UBetween: math.NaN(),
-		UAbsolute: math.Hypot(u, math.Hypot(abs, ofCurrent)), N: n,
+		UAbsolute: rss(u, rss(abs, ofCurrent)), N: n,
 	}
 }

@@ -22,13 +22,7 @@ type poly struct {
 	beta   [maxDegree + 1]float64
 	norm   [maxDegree + 1]float64
 	c      [maxDegree + 1]float64
-}
-
-func (p *poly) weight(j int) float64 {
-	if p.w == nil {
-		return 1
-	}
-	return p.w[j]
+	b      []float64 // basis k at point j: b[k*len(x)+j]
 }
 
 // basis evaluates the polynomials and their slopes at x.
@@ -46,22 +40,34 @@ func (p *poly) basis(x float64) (v, s [maxDegree + 1]float64) {
 }
 
 // fit finds the polynomial of that degree through x, y with weights w (1/σ²;
-// nil: equal). It returns false when there are not more different abscissas
-// than the degree.
+// nil: equal), x ascending. It returns false when there are not more different
+// abscissas than the degree.
 func (p *poly) fit(x, y, w []float64, degree int) bool {
-	if len(x) <= degree {
+	m := len(x)
+	if m <= degree || m > 1 && !(x[m-1] > x[0]) {
 		return false
 	}
-	*p = poly{x: x, w: w}
+	p.x, p.w, p.degree = x, w, degree
+	if need := (degree + 1) * m; cap(p.b) < need {
+		p.b = make([]float64, need, max(need, (maxDegree+1)*(2*windowSide+2)))
+	} else {
+		p.b = p.b[:need]
+	}
+	for j := range m {
+		p.b[j] = 1
+	}
 	for k := 0; ; k++ {
-		// The basis up to degree k is known here; project on its last member.
+		b := p.b[k*m : (k+1)*m]
 		var norm, xnorm, c float64
-		for j := range x {
-			v, _ := p.basis(x[j])
-			g := p.weight(j) * v[k]
-			norm += g * v[k]
-			xnorm += g * v[k] * x[j]
+		for j, v := range b {
+			g := v
+			if w != nil {
+				g *= w[j]
+			}
 			c += g * y[j]
+			g *= v
+			norm += g
+			xnorm += g * x[j]
 		}
 		if !(norm > 0) || math.IsInf(norm, 0) {
 			return false
@@ -70,15 +76,19 @@ func (p *poly) fit(x, y, w []float64, degree int) bool {
 		if k == degree {
 			return true
 		}
-		p.alpha[k] = xnorm / norm
-		if k > 0 {
-			p.beta[k] = norm / p.norm[k-1]
+		a := xnorm / norm
+		p.alpha[k] = a
+		next := p.b[(k+1)*m : (k+2)*m]
+		if k == 0 {
+			for j := range next {
+				next[j] = x[j] - a
+			}
+			continue
 		}
-		p.degree = k + 1
-		// Nothing left to be spanned: fewer different abscissas than thought.
-		span := x[len(x)-1] - x[0]
-		if !(span > 0) {
-			return false
+		p.beta[k] = norm / p.norm[k-1]
+		before := p.b[(k-1)*m : k*m]
+		for j := range next {
+			next[j] = (x[j]-a)*b[j] - p.beta[k]*before[j]
 		}
 	}
 }
@@ -97,24 +107,31 @@ func (p *poly) at(x float64) (value, slope float64) {
 // value = Σ value[j] y[j]. Either may be nil.
 func (p *poly) maps(x float64, value, slope []float64) {
 	v, s := p.basis(x)
-	for k := range p.degree + 1 {
-		v[k] /= p.norm[k]
-		s[k] /= p.norm[k]
+	if value != nil {
+		p.row(v, value)
 	}
+	if slope != nil {
+		p.row(s, slope)
+	}
+}
+
+// row writes the linear map to Σ at[k] c[k].
+func (p *poly) row(at [maxDegree + 1]float64, row []float64) {
 	for j := range p.x {
-		b, _ := p.basis(p.x[j])
-		g, d := 0.0, 0.0
-		for k := range p.degree + 1 {
-			g += b[k] * v[k]
-			d += b[k] * s[k]
-		}
-		if value != nil {
-			value[j] = p.weight(j) * g
-		}
-		if slope != nil {
-			slope[j] = p.weight(j) * d
-		}
+		row[j] = p.share(&at, j)
 	}
+}
+
+// share is the part that ordinate j has in Σ at[k] c[k].
+func (p *poly) share(at *[maxDegree + 1]float64, j int) float64 {
+	g, m := 0.0, len(p.x)
+	for k := 0; k <= p.degree; k++ {
+		g += p.b[k*m+j] * at[k] / p.norm[k]
+	}
+	if p.w != nil {
+		g *= p.w[j]
+	}
+	return g
 }
 
 // scatter is the standard deviation that uncertainties sigma of the ordinates
@@ -124,17 +141,9 @@ func (p *poly) scatter(x float64, sigma []float64, slope bool) float64 {
 	if slope {
 		v = s
 	}
-	for k := range p.degree + 1 {
-		v[k] /= p.norm[k]
-	}
 	sum := 0.0
 	for j := range p.x {
-		b, _ := p.basis(p.x[j])
-		g := 0.0
-		for k := range p.degree + 1 {
-			g += b[k] * v[k]
-		}
-		g *= p.weight(j) * sigma[j]
+		g := p.share(&v, j) * sigma[j]
 		sum += g * g
 	}
 	return math.Sqrt(sum)

@@ -26,7 +26,7 @@ func (w *work) contradicts(a, b *point) bool {
 	if fall <= 0 || b.vg-a.vg <= math.Max(1e-3, math.Max(2*w.grid, 4*a.ux)) {
 		return false // noise of the gate reading may have exchanged them
 	}
-	return fall > 5*math.Hypot(a.u, b.u)+2*(a.q+b.q)
+	return fall > 5*rss(a.u, b.u)+2*(a.q+b.q)
 }
 
 // dropContradictions leaves out, worst first, the points that contradict most
@@ -155,10 +155,10 @@ func (w *work) spike(j int) float64 {
 		}
 		lo, hi = continued(&p[j-2], &p[j-1], p[j].vg)
 		lo = math.Min(lo, p[j-1].i) // it may have come to its limit
-		noise = math.Hypot(noise, p[j-1].u)
+		noise = rss(noise, p[j-1].u)
 	} else {
 		lo, hi = between(&p[j-1], &p[j+1], p[j].vg)
-		noise = math.Hypot(noise, math.Hypot(p[j-1].u, p[j+1].u))
+		noise = rss(noise, rss(p[j-1].u, p[j+1].u))
 	}
 	e := outside(p[j].i, lo, hi)
 	if e <= lineTolerance {

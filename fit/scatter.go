@@ -79,7 +79,7 @@ func (w *work) logSlope(j int) float64 {
 	if !(a.i > 0) || !(b.i > 0) {
 		return math.NaN()
 	}
-	return math.Log(b.i/a.i) / (b.vg - a.vg)
+	return (b.ln - a.ln) / (b.vg - a.vg)
 }
 
 // trimmedMean is the expected mean of the lowest kept of n squares of standard
@@ -123,20 +123,20 @@ func (w *work) pseudoResidual(j int) (square, known float64, ok bool) {
 		factor += l[a] * l[a]
 	}
 	o := root
-	if !(p[0].i > 0) || 2*(p[4].vg-p[0].vg)/math.Log(p[4].i/p[0].i) < knee {
+	if !(p[0].i > 0) || 2*(p[4].vg-p[0].vg) < knee*(p[4].ln-p[0].ln) {
 		o = logarithm
 	}
-	slope := (o.of(p[4].i) - o.of(p[0].i)) / (p[4].vg - p[0].vg)
+	slope := (o.at(&p[4]) - o.at(&p[0])) / (p[4].vg - p[0].vg)
 	if !(slope > 0) {
 		return 0, 0, false
 	}
-	r := o.of(p[2].i)
+	r := o.at(&p[2])
 	l[2] = 1
 	for a := range p {
 		if a != 2 {
-			r -= l[a] * o.of(p[a].i)
+			r -= l[a] * o.at(&p[a])
 		}
-		u := l[a] * p[a].u * o.slope(p[a].i) / slope
+		u := l[a] * p[a].u * o.slopeAt(&p[a]) / slope
 		known += u*u + l[a]*l[a]*p[a].ux*p[a].ux
 	}
 	return r * r / (slope * slope) / factor, known / factor, true

@@ -29,7 +29,7 @@ func (w *work) forSlopes(e float64) slopePoints {
 	s := slopePoints{x: f[:0:n], i: f[n : n : 2*n], u: f[2*n : 2*n : 3*n], e: f[3*n : 3*n], from: make([]int, 0, n)}
 	for j := 0; j < n; {
 		// Within three standard deviations of the first of the group.
-		near := 3 * math.Hypot(e, w.pts[j].ux)
+		near := 3 * rss(e, w.pts[j].ux)
 		k := j + 1
 		for k < n && w.pts[k].vg-w.pts[j].vg < near {
 			k++
@@ -45,7 +45,7 @@ func (w *work) forSlopes(e float64) slopePoints {
 		s.x = append(s.x, x/m)
 		s.i = append(s.i, i/m)
 		s.u = append(s.u, math.Sqrt(uu)/m)
-		s.e = append(s.e, math.Hypot(e, w.pts[j].ux)/math.Sqrt(m))
+		s.e = append(s.e, rss(e, w.pts[j].ux)/math.Sqrt(m))
 		j = k
 	}
 	s.m = s.width(e)
@@ -71,13 +71,13 @@ func (s *slopePoints) width(e float64) int {
 }
 
 // slopeAt is dI/dV_G at voltage x by a local parabola through the m points
-// around index j, in the given ordinate, with its uncertainty by the linear map
-// of the points; NaN when the points do not allow it.
-func (s *slopePoints) slopeAt(o ordinate, j, m int, x float64) (g, u float64) {
+// around index j, in the given ordinate, and di/d(ordinate) there; NaN when the
+// points do not allow it. The polynomial stays in p.
+func (s *slopePoints) slopeAt(p *poly, o ordinate, j, m int, x float64) (g, back float64) {
 	n := len(s.x)
 	m = min(m, n)
 	lo := max(0, min(j-m/2, n-m))
-	var y, sigma [slopeWindowMax]float64
+	var y [slopeWindowMax]float64
 	for k := range m {
 		i := s.i[lo+k]
 		if o != plain && !(i > 0) {
@@ -85,25 +85,31 @@ func (s *slopePoints) slopeAt(o ordinate, j, m int, x float64) (g, u float64) {
 		}
 		y[k] = o.of(i)
 	}
-	rise := (y[m-1] - y[0]) / (s.x[lo+m-1] - s.x[lo])
-	for k := range m {
-		sigma[k] = math.Hypot(s.u[lo+k]*o.slope(s.i[lo+k]), rise*s.e[lo+k])
-	}
-	var p poly
 	if !p.fit(s.x[lo:lo+m], y[:m], nil, min(2, m-1)) {
 		return math.NaN(), math.NaN()
 	}
 	v, d := p.at(x)
-	var back float64 // di/d(ordinate)
+	back = 1 // di/d(ordinate)
 	switch o {
 	case root:
 		back = 2 * v
 	case logarithm:
 		back = math.Exp(v)
-	default:
-		back = 1
 	}
-	return back * d, math.Abs(back) * p.scatter(x, sigma[:m], true)
+	return back * d, back
+}
+
+// slopeScatter is the uncertainty of the slope that slopeAt has just left in p.
+func (s *slopePoints) slopeScatter(p *poly, o ordinate, j, m int, x, back float64) float64 {
+	n := len(s.x)
+	m = min(m, n)
+	lo := max(0, min(j-m/2, n-m))
+	var sigma [slopeWindowMax]float64
+	rise := (o.of(s.i[lo+m-1]) - o.of(s.i[lo])) / (s.x[lo+m-1] - s.x[lo])
+	for k := range m {
+		sigma[k] = rss(s.u[lo+k]*o.slope(s.i[lo+k]), rise*s.e[lo+k])
+	}
+	return math.Abs(back) * p.scatter(x, sigma[:m], true)
 }
 
 // ordinateAt chooses what is differentiated at index j: the current itself
@@ -131,16 +137,17 @@ func (w *work) linear() bool {
 
 // widen grows the window from m points as long as the slopes agree within
 // their uncertainty, and gives the widest.
-func (s *slopePoints) widen(o ordinate, j, m int, x float64) (g, u float64, n int) {
+func (s *slopePoints) widen(p *poly, o ordinate, j, m int, x float64) (g, u float64, n int) {
 	least, most := math.Inf(-1), math.Inf(1)
 	for ; m <= slopeWindowMax; m += 2 {
 		if m > len(s.x) && n > 0 {
 			break
 		}
-		v, uv := s.slopeAt(o, j, m, x)
+		v, back := s.slopeAt(p, o, j, m, x)
 		if math.IsNaN(v) {
 			break
 		}
+		uv := s.slopeScatter(p, o, j, m, x, back)
 		least, most = math.Max(least, v-agreeing*uv), math.Min(most, v+agreeing*uv)
 		if n > 0 && least > most {
 			break
@@ -184,13 +191,13 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		if !(s.i[j] > 0) {
 			continue
 		}
-		g, _ := s.slopeAt(w.ordinateAt(&s, j), j, m, s.x[j])
+		g, _ := s.slopeAt(&w.poly, w.ordinateAt(&s, j), j, m, s.x[j])
 		if g > best {
 			best, at = g, j
 		}
 	}
 	if at >= 0 && best > 0 {
-		g, u, used := s.widen(w.ordinateAt(&s, at), at, m, s.x[at])
+		g, u, used := s.widen(&w.poly, w.ordinateAt(&s, at), at, m, s.x[at])
 		r.GmMax = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, s.i[at], 1, 1)
 	}
 	if math.IsNaN(idle.v) {
@@ -200,7 +207,7 @@ func (w *work) transconductances(r *Result, idle crossing) {
 	for j < n-1 && math.Abs(s.x[j+1]-idle.v) <= math.Abs(s.x[j]-idle.v) {
 		j++
 	}
-	g, u, used := s.widen(w.ordinateAt(&s, j), j, min(5, m), idle.v)
+	g, u, used := s.widen(&w.poly, w.ordinateAt(&s, j), j, min(5, m), idle.v)
 	if g > 0 {
 		r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, w.s.IdleCurrent, 1, 1)
 	}
@@ -216,7 +223,7 @@ func (w *work) withGain(q Quantity, i, ofCurrent, ofGate float64) Quantity {
 		v = 1 // a gain is what matters
 	}
 	g := ofGate * rangeFor(w.s.Gate, v).absolute(v) / v
-	q.UAbsolute = math.Hypot(q.U, math.Abs(q.Value)*math.Hypot(c, g))
+	q.UAbsolute = rss(q.U, math.Abs(q.Value)*rss(c, g))
 	return q
 }
 
@@ -233,5 +240,5 @@ func (w *work) midGate() float64 {
 // relativeUsed is the relative standard uncertainty of the currents used,
 // against the SI unit.
 func (w *work) relativeUsed(i float64) float64 {
-	return math.Hypot(w.relative(i, w.onLoad || !w.ammeter), w.doubt)
+	return rss(w.relative(i, w.onLoad || !w.ammeter), w.doubt)
 }

@@ -35,6 +35,7 @@ type work struct {
 
 	pts   []point // usable points in the order in which the part turns on
 	grid  float64 // V, step that the digits of the gate readings show; 0: none
+	poly  poly    // scratch
 	left  []LeftOut
 	warns []Warning
 }
@@ -48,6 +49,8 @@ type point struct {
 	u   float64 // A, standard deviation of i as far as stated or seen in its digits
 	q   float64 // A, one count of i; 0: not known
 	vds float64 // V, NaN when not known
+	rt  float64 // √i, of a current above zero
+	ln  float64 // ln i, of a current above zero
 
 	a, l   float64 // A, by ammeter and by load resistor; NaN: none
 	qa, ql float64 // A, one count of these
