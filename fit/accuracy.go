@@ -57,7 +57,11 @@ func decimals(x float64) (int, bool) {
 	}
 	// First decimal exponent of the leading digit, then more places until the
 	// number is whole.
-	lead := int(math.Floor(math.Log10(x)))
+	_, e := math.Frexp(x)
+	lead := int(math.Floor(float64(e-1) * math.Log10(2))) // this or one less than the true one
+	if lead >= -40 && lead < 40 && x >= pow10(lead+1)*(1-1e-12) {
+		lead++
+	}
 	for digits := range maxDigits {
 		d := digits - lead
 		y := x * pow10(d)

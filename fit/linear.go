@@ -165,7 +165,7 @@ func (w *work) tangent(r *resistive) (Threshold, bool) {
 	n := l.to - l.from
 	i := w.pts[min(len(w.pts)-1, r.from[l.to-1])].i
 	t := Threshold{From: r.from[l.from], To: w.oneBeyond(r, l.to)}
-	t.Vt = w.gateQuantity(vt, uvt, 0, n)
+	t.Vt = w.gateQuantity(vt, uvt, l.model(), n)
 	t.Beta = w.withGain(Quantity{Value: b, U: ub, UBetween: math.NaN(), N: n}, i, 1, 1)
 	return t, true
 }
@@ -193,6 +193,9 @@ func (w *work) ratioMethod(r *resistive) (t Threshold, theta Quantity, ok bool) 
 	n := len(r.x)
 	from := r.first(ratioTop)
 	to := n - ratioEnd
+	if half := r.m / 2; to-from-half > 2*leastOnLine {
+		from += half // windows that still reach into the knee
+	}
 	for to > from && math.IsNaN(r.g[to-1]) {
 		to--
 	}
@@ -200,9 +203,8 @@ func (w *work) ratioMethod(r *resistive) (t Threshold, theta Quantity, ok bool) 
 		w.warn(CodeFewPoints, "Too few points beyond the knee: no threshold by the ratio.")
 		return t, None(), false
 	}
-	m := to - from
-	y, sigma := make([]float64, m), make([]float64, m)
-	for k := range m {
+	y, sigma := make([]float64, to-from), make([]float64, to-from)
+	for k := range y {
 		j := from + k
 		if !(r.g[j] > 0) || !(r.i[j] > 0) {
 			w.warn(CodeFewPoints, "The curve does not rise beyond the knee: no threshold by the ratio.")
@@ -211,21 +213,27 @@ func (w *work) ratioMethod(r *resistive) (t Threshold, theta Quantity, ok bool) 
 		y[k] = r.i[j] / math.Sqrt(r.g[j])
 		sigma[k] = r.scatterOfRatio(j)
 	}
-	l, ok := layLine(r.x[from:to], y, sigma, from)
-	if !ok {
-		w.warn(CodeFewPoints, "The ratio does not rise: no threshold by the ratio.")
-		return t, None(), false
+	var l line
+	var vt, b float64
+	for ; ; from, y, sigma = from+1, y[1:], sigma[1:] {
+		if len(y) < leastOnLine+1 {
+			w.warn(CodeSubThresholdOnly, "The curve ends at the knee: no threshold by the ratio.")
+			return t, None(), false
+		}
+		if l, ok = layLine(r.x[from:to], y, sigma, from); !ok {
+			w.warn(CodeFewPoints, "The ratio does not rise: no threshold by the ratio.")
+			return t, None(), false
+		}
+		vt, _ = l.zero()
+		if _, b = l.p.at(0); r.x[from]+r.vds[from]/2-vt >= r.vds[from] {
+			break // resistive from here on
+		}
 	}
-	vt, _ := l.zero()
-	b, _ := l.slope()
-	if !(r.x[from]-vt >= r.vds[from]/2) {
-		w.warn(CodeSubThresholdOnly, "The curve ends at the knee: no threshold by the ratio.")
-		return t, None(), false
-	}
+	m := to - from
 	uvt, ubeta, th, uth := w.throughRatio(r, &l, vt, b)
 	i := w.pts[r.from[to-1]].i
 	t = Threshold{From: r.from[from], To: w.oneBeyond(r, to)}
-	t.Vt = w.gateQuantity(vt, uvt, 0, m)
+	t.Vt = w.gateQuantity(vt, uvt, l.model(), m)
 	t.Beta = w.withGain(Quantity{Value: b * b, U: ubeta, UBetween: math.NaN(), N: m}, i, 1, 1)
 	theta = w.withGain(Quantity{Value: th, U: uth, UBetween: math.NaN(), N: m}, i, 0, 1)
 	return t, theta, true

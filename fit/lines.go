@@ -16,6 +16,9 @@ const (
 	// slopesApart is the ratio of the slopes in the two halves of a window from
 	// which there is no straight line to speak of.
 	slopesApart = 1.5
+	// kneeBend is by how much more the rest of a window may rise than its lowest
+	// part: a smooth knee reaches 3 % at 3.5 times 2 n kT/q overdrive.
+	kneeBend = 1.03
 	// Floors of the weights: what the straight line itself is wrong by, as shares
 	// of the ordinate and of the greatest ordinate. Without them the lowest
 	// points, whose noise is least, would decide.
@@ -27,9 +30,11 @@ const (
 // ordinates.
 type line struct {
 	p     poly
+	y     []float64
 	sigma []float64
-	from  int // first point
-	to    int // one past the last
+	floor []float64 // what the line itself is wrong by at each point
+	from  int       // first point
+	to    int       // one past the last
 }
 
 // zero is the abscissa where the line meets zero, with its random uncertainty.
@@ -37,6 +42,31 @@ func (l *line) zero() (x, u float64) {
 	v, b := l.p.at(0)
 	x = -v / b
 	return x, l.p.scatter(x, l.sigma, false) / math.Abs(b)
+}
+
+// model is the uncertainty of that abscissa because the line is not the curve:
+// the floors of the weights taken as scatter, and half the distance between the
+// zeros of lines through the lower and the upper half of the points. It is much
+// the same for all parts of a lot, so it counts in absolute statements only.
+func (l *line) model() float64 {
+	x, _ := l.zero()
+	_, b := l.p.at(0)
+	u := l.p.scatter(x, l.floor, false) / math.Abs(b)
+	m := len(l.y)
+	if m < 6 {
+		return u
+	}
+	var lower, upper poly
+	h := m / 2
+	if !lower.fit(l.p.x[:h], l.y[:h], l.p.w[:h], 1) || !upper.fit(l.p.x[m-h:], l.y[m-h:], l.p.w[m-h:], 1) {
+		return u
+	}
+	v1, b1 := lower.at(x)
+	v2, b2 := upper.at(x)
+	if !(b1 > 0) || !(b2 > 0) {
+		return u
+	}
+	return rss(u, (v1/b1-v2/b2)/2)
 }
 
 // slope is the slope of the line, with its random uncertainty.
@@ -51,12 +81,13 @@ func layLine(x, y, sigma []float64, from int) (line, bool) {
 	for _, v := range y {
 		top = math.Max(top, math.Abs(v))
 	}
-	wt := make([]float64, len(x))
+	f := make([]float64, 2*len(x))
+	wt, floor := f[:len(x)], f[len(x):]
 	for j := range wt {
-		a, b := floorShare*y[j], floorOfTop*top
-		wt[j] = 1 / (sigma[j]*sigma[j] + a*a + b*b)
+		floor[j] = rss(floorShare*y[j], floorOfTop*top)
+		wt[j] = 1 / (sigma[j]*sigma[j] + floor[j]*floor[j])
 	}
-	l := line{sigma: sigma, from: from, to: from + len(x)}
+	l := line{y: y, sigma: sigma, floor: floor, from: from, to: from + len(x)}
 	ok := l.p.fit(x, y, wt, 1)
 	if ok {
 		_, b := l.p.at(0)
@@ -71,9 +102,10 @@ func layLine(x, y, sigma []float64, from int) (line, bool) {
 // Weighted least squares over the points from 1 to 30 % of the current limit or
 // of the greatest current, whichever is less, with V_DS above the overdrive and,
 // in the load circuit, less than 0.3 V_DD across R_L; up to all of them where
-// these are fewer than four. Weights: the points' scatter, and the floors that
+// these are fewer than four; without the first ones that belong to the knee. Weights: the points' scatter, and the floors that
 // the line itself is wrong by (0.5 % of the ordinate, 0.1 % of the greatest);
-// the uncertainty is that of the scatter alone.
+// the random uncertainty is that of the scatter alone, the absolute one holds
+// the floors.
 //
 // Declines with few-points, sub-threshold-only or not-saturated. Not reached:
 // series resistance and mobility bend the line and pull V_T down by some
@@ -116,7 +148,7 @@ func (w *work) squareRoot() (Threshold, bool) {
 	n := len(l.sigma)
 	i := w.pts[l.to-1].i
 	t := Threshold{From: l.from, To: l.to}
-	t.Vt = w.gateQuantity(vt, uvt, 0, n)
+	t.Vt = w.gateQuantity(vt, uvt, l.model(), n)
 	t.Beta = w.withGain(Quantity{Value: 2 * b * b, U: 4 * b * ub, UBetween: math.NaN(), N: n}, i, 1, 2)
 	return t, true
 }
@@ -163,7 +195,7 @@ func (w *work) lightlyLoaded(p *point, top float64) bool {
 // rootLine lays the line through the points of the window among use.
 func (w *work) rootLine(use []int) (line, bool) {
 	top := 0.0
-	for _, j := range use {
+	for j := range w.pts {
 		top = math.Max(top, w.pts[j].i)
 	}
 	if positive(w.s.MaxID) {
@@ -180,6 +212,9 @@ func (w *work) rootLine(use []int) (line, bool) {
 			continue
 		}
 		e := w.scatterNear((from + to) / 2)
+		for to-from > leastOnLine && w.kneeAtStart(from, to, e) {
+			from++
+		}
 		m := to - from
 		f := make([]float64, 3*m)
 		x, y, sigma := f[:m], f[m:2*m], f[2*m:]
@@ -192,6 +227,31 @@ func (w *work) rootLine(use []int) (line, bool) {
 		return layLine(x, y, sigma, from)
 	}
 	return line{}, false
+}
+
+// kneeAtStart reports whether the lowest part of from…to-1, a quarter of the
+// span but at least 0.1 V, rises clearly less than the rest: it still belongs
+// to the knee and would pull the line down.
+func (w *work) kneeAtStart(from, to int, e float64) bool {
+	p := w.pts
+	part := math.Max(0.1, (p[to-1].vg-p[from].vg)/4)
+	k := from + 1
+	for k < to-2 && p[k].vg-p[from].vg < part {
+		k++
+	}
+	if k >= to-1 {
+		return false
+	}
+	lower, upper := w.rootSlope(from, k), w.rootSlope(k, to-1)
+	noise := 2 * math.Sqrt2 * e * upper / (p[k].vg - p[from].vg)
+	return upper-noise > kneeBend*lower
+}
+
+// halves gives the slopes of the root of the current in the lower and the upper
+// half of from…to-1.
+func (w *work) halves(from, to int) (lower, upper float64) {
+	h := (to - from) / 2
+	return w.rootSlope(from, from+h), w.rootSlope(to-1-h, to-1)
 }
 
 // declineLine says why no line was laid: how the slopes of √I disagree where
@@ -223,8 +283,7 @@ func (w *work) straight(l *line) bool {
 		w.warn(CodeSubThresholdOnly, "The curve still rises exponentially at its top ("+amps(b.i)+"): no extrapolated threshold.")
 		return false
 	}
-	h := m / 2
-	lower, upper := w.rootSlope(l.from, l.from+h), w.rootSlope(l.from+m-1-h, l.to-1)
+	lower, upper := w.halves(l.from, l.to)
 	if upper > slopesApart*lower {
 		w.warn(CodeSubThresholdOnly, "The square root of the current rises by "+number(lower)+" and then by "+number(upper)+
 			" √A/V: the points lie at the knee, so no extrapolated threshold.")
@@ -239,11 +298,11 @@ func (w *work) straight(l *line) bool {
 }
 
 // gateQuantity makes a quantity of a gate voltage v (n-channel sign) with random
-// part u; ofCurrent is its uncertainty from the current's gain, V.
-func (w *work) gateQuantity(v, u, ofCurrent float64, n int) Quantity {
+// part u; other is its further absolute uncertainty, V.
+func (w *work) gateQuantity(v, u, other float64, n int) Quantity {
 	abs := rangeFor(w.s.Gate, v).absolute(v)
 	return Quantity{
 		Value: w.sign * v, U: u, UBetween: math.NaN(),
-		UAbsolute: rss(u, rss(abs, ofCurrent)), N: n,
+		UAbsolute: rss(u, rss(abs, other)), N: n,
 	}
 }

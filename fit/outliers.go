@@ -34,6 +34,14 @@ func (w *work) contradicts(a, b *point) bool {
 // would ruin whatever is fitted to it.
 func (w *work) dropContradictions() {
 	n := len(w.pts)
+	top, falls := math.Inf(-1), false
+	for j := range w.pts {
+		top = math.Max(top, w.pts[j].i)
+		falls = falls || top-w.pts[j].i > fallTolerance*math.Abs(top)
+	}
+	if !falls {
+		return
+	}
 	var counts []int
 	falling, rising := 0, 0
 	for i := range n {

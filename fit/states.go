@@ -253,11 +253,22 @@ func (w *work) gateWasOff() bool {
 }
 
 // diodeLike warns where a diode-connected enhancement part reaches the current
-// at a body diode's forward voltage: one reading cannot tell it from a part of
-// very low threshold.
+// at a body diode's forward voltage and, as far as it was read, rises as
+// steeply as one. One reading cannot tell it from a part of very low threshold.
 func (w *work) diodeLike(v float64) {
-	if w.s.Circuit == Diode && !w.s.Depletion && v >= diodeLow && v <= 0.85 {
-		w.warn(CodeWrongWayRound, "The part reaches the current at "+volts(w.gate*v)+
-			", where a body diode does: drain and source are exchanged, unless parts of this type turn on so low.")
+	const perDecade = 0.13 // V, more than a diode with its series resistance takes
+	if w.s.Circuit != Diode || w.s.Depletion || v < diodeLow || v > 0.85 {
+		return
 	}
+	last := &w.pts[len(w.pts)-1]
+	for j := len(w.pts) - 1; j >= 0; j-- {
+		if p := &w.pts[j]; p.i <= last.i/10 {
+			if last.vg-p.vg > perDecade {
+				return
+			}
+			break
+		}
+	}
+	w.warn(CodeWrongWayRound, "The part reaches the current at "+volts(w.gate*v)+
+		", where a body diode does: drain and source are exchanged, unless parts of this type turn on so low.")
 }

@@ -9,7 +9,16 @@ const (
 	slopeWindowMax = 31
 	// slopeNoise is the relative scatter of a slope that a window is made wide
 	// enough for (judgement).
-	slopeNoise = 0.02
+	slopeNoise = 0.005
+	// firstNoise and slopeLeast are the same for the window from which a slope at
+	// one place is widened.
+	firstNoise = 0.01
+	slopeLeast = 7
+	// slopesAgree is how many standard deviations slopes from growing windows may
+	// lie apart, and leanShare the share of the difference of the leaning parabolas
+	// that counts as uncertainty (chosen on self-made curves).
+	slopesAgree = 1.0
+	leanShare   = 0.5
 )
 
 // slopePoints is the curve as slopes are taken of it: points nearer together
@@ -20,6 +29,8 @@ type slopePoints struct {
 	e       []float64 // V, standard deviation of x
 	from    []int     // index of the first of the points merged
 	m       int       // points in a window, odd
+	degree  int
+	least   int // points in the narrowest window that is worth a slope, odd
 }
 
 // forSlopes merges near neighbours; e is the scatter in volts.
@@ -48,19 +59,20 @@ func (w *work) forSlopes(e float64) slopePoints {
 		s.e = append(s.e, rss(e, w.pts[j].ux)/math.Sqrt(m))
 		j = k
 	}
-	s.m = s.width(e)
+	s.degree = 2
+	s.m, s.least = s.width(e, slopeNoise, slopeWindow), s.width(e, firstNoise, slopeLeast)
 	return s
 }
 
-// width is the number of points of a window: seven, more where steps are fine
-// against the scatter e, fewer where there are no more. The slope over m points
+// width is the number of points of a window: m, more where steps are fine
+// against the scatter e for a slope of that relative noise, fewer where there
+// are no more. The slope over m points
 // a step h apart scatters by e √12 / (h m^1.5), relative to the slope itself.
-func (s *slopePoints) width(e float64) int {
+func (s *slopePoints) width(e, noise float64, m int) int {
 	n := len(s.x)
-	m := slopeWindow
 	if n > 1 && e > 0 {
 		h := (s.x[n-1] - s.x[0]) / float64(n-1)
-		if need := math.Pow(e*math.Sqrt(12)/(slopeNoise*h), 2./3); need < slopeWindowMax {
+		if need := math.Pow(e*math.Sqrt(12)/(noise*h), 2./3); need < slopeWindowMax {
 			m = max(m, int(need))
 		} else {
 			m = slopeWindowMax
@@ -85,7 +97,7 @@ func (s *slopePoints) slopeAt(p *poly, o ordinate, j, m int, x float64) (g, back
 		}
 		y[k] = o.of(i)
 	}
-	if !p.fit(s.x[lo:lo+m], y[:m], nil, min(2, m-1)) {
+	if !p.fit(s.x[lo:lo+m], y[:m], nil, min(s.degree, m-1)) {
 		return math.NaN(), math.NaN()
 	}
 	v, d := p.at(x)
@@ -112,6 +124,23 @@ func (s *slopePoints) slopeScatter(p *poly, o ordinate, j, m int, x, back float6
 	return math.Abs(back) * p.scatter(x, sigma[:m], true)
 }
 
+// sober is the slope at point j over the widest window, of m points or less,
+// that does not overshoot: within what the chords to the two neighbours show,
+// widened by their scatter. A parabola across the corner of a load line does.
+func (s *slopePoints) sober(p *poly, o ordinate, j int) (g float64, m int) {
+	left := (s.i[j] - s.i[j-1]) / (s.x[j] - s.x[j-1])
+	right := (s.i[j+1] - s.i[j]) / (s.x[j+1] - s.x[j])
+	lo, hi := math.Min(left, right), math.Max(left, right)
+	h := math.Min(s.x[j]-s.x[j-1], s.x[j+1]-s.x[j])
+	doubt := 0.003*hi + 3*rss(s.e[j]*hi, s.u[j])/h
+	for m = s.m; ; m -= 2 {
+		g, _ = s.slopeAt(p, o, j, m, s.x[j])
+		if m <= 3 || g >= lo-doubt && g <= hi+doubt {
+			return g, m
+		}
+	}
+}
+
 // ordinateAt chooses what is differentiated at index j: the current itself
 // where the channel is a resistor, its root in strong inversion, its logarithm
 // below, where the relative noise is the same everywhere.
@@ -135,41 +164,66 @@ func (w *work) linear() bool {
 	return w.s.Circuit == Fixed && w.fixedVds() <= linearVds
 }
 
-// widen grows the window from m points as long as the slopes agree within
-// their uncertainty, and gives the widest.
+// widen grows the window around x from m points as long as the slopes agree
+// within their scatter, and gives the widest; the uncertainty holds the
+// difference of two parabolas that lean to either side, for a bend within the
+// window.
 func (s *slopePoints) widen(p *poly, o ordinate, j, m int, x float64) (g, u float64, n int) {
 	least, most := math.Inf(-1), math.Inf(1)
-	for ; m <= slopeWindowMax; m += 2 {
-		if m > len(s.x) && n > 0 {
-			break
-		}
-		v, back := s.slopeAt(p, o, j, m, x)
+	back := 0.0
+	for ; m <= slopeWindowMax && (m <= len(s.x) || n == 0); m += 2 {
+		v, b := s.slopeAt(p, o, j, m, x)
 		if math.IsNaN(v) {
 			break
 		}
-		uv := s.slopeScatter(p, o, j, m, x, back)
-		least, most = math.Max(least, v-agreeing*uv), math.Min(most, v+agreeing*uv)
+		uv := s.slopeScatter(p, o, j, m, x, b)
+		least, most = math.Max(least, v-slopesAgree*uv), math.Min(most, v+slopesAgree*uv)
 		if n > 0 && least > most {
 			break
 		}
-		g, u, n = v, uv, min(m, len(s.x))
+		g, u, n, back = v, uv, min(m, len(s.x)), b
 	}
 	if n == 0 {
 		return math.NaN(), math.NaN(), 0
 	}
-	return g, u, n
+	return g, rss(u, leanShare*s.leaning(p, o, j, n, x, back)), n
+}
+
+// leaning is the difference of the slopes at x of two parabolas that lack a
+// quarter of the m points at one end each.
+func (s *slopePoints) leaning(p *poly, o ordinate, j, m int, x, back float64) float64 {
+	n := len(s.x)
+	lo := max(0, min(j-m/2, n-m))
+	cut := max(1, m/4)
+	if m-cut < 3 {
+		return 0
+	}
+	var y [slopeWindowMax]float64
+	for k := range m {
+		y[k] = o.of(s.i[lo+k])
+	}
+	if !p.fit(s.x[lo:lo+m-cut], y[:m-cut], nil, 2) {
+		return 0
+	}
+	_, left := p.at(x)
+	if !p.fit(s.x[lo+cut:lo+m], y[cut:m], nil, 2) {
+		return 0
+	}
+	_, right := p.at(x)
+	return math.Abs(back * (left - right))
 }
 
 // transconductances fills in the greatest slope of the curve and the one at the
 // idle current.
 //
-// g_m = dI_D/dV_GS by local parabolas over seven points, more where steps are
+// g_m = dI_D/dV_GS by local polynomials over seven points, more where steps are
 // fine against the noise (non-uniform steps allowed), in I, √I or ln I by
-// region; at the place asked for the window grows while the slopes agree. Points
+// region: parabolas for the greatest slope, cubics at the idle current, where
+// the window grows while the slopes agree. Points
 // nearer than three times the gate uncertainty are merged; the points at either
-// end, where the window is one-sided, are no candidates for the maximum. In the load circuit it is
-// the slope of the circuit, dI/dV_G, which falls below g_m where the drain
-// voltage collapses.
+// end, where the window is one-sided, are no candidates for the maximum, nor are points with more than
+// half of V_DD across R_L. In the load circuit it is the slope of the circuit,
+// dI/dV_G, which falls below g_m where the drain voltage collapses.
 //
 // Source: A. Savitzky and M. J. E. Golay, Anal. Chem. 36 (1964) 1627–1639, for
 // non-uniform steps W. S. Cleveland, J. Am. Stat. Assoc. 74 (1979) 829–836 (both
@@ -186,18 +240,22 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		return
 	}
 	m := s.m
-	best, at := math.Inf(-1), -1
+	best, at, width := math.Inf(-1), -1, m
 	for j := m / 2; j < n-m/2; j++ {
-		if !(s.i[j] > 0) {
+		if !(s.i[j] > 0) || w.nearlyThrough(s.i[j], s.from[j]) {
 			continue
 		}
-		g, _ := s.slopeAt(&w.poly, w.ordinateAt(&s, j), j, m, s.x[j])
+		g, used := s.sober(&w.poly, w.ordinateAt(&s, j), j)
 		if g > best {
-			best, at = g, j
+			best, at, width = g, j, used
 		}
 	}
 	if at >= 0 && best > 0 {
-		g, u, used := s.widen(&w.poly, w.ordinateAt(&s, at), at, m, s.x[at])
+		g, u, used := s.widen(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at])
+		_, back := s.slopeAt(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at])
+		// The greatest of many is great by chance as well: the scatter of one of
+		// them is left in.
+		u = rss(u, s.slopeScatter(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at], back))
 		r.GmMax = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, s.i[at], 1, 1)
 	}
 	if math.IsNaN(idle.v) {
@@ -207,10 +265,34 @@ func (w *work) transconductances(r *Result, idle crossing) {
 	for j < n-1 && math.Abs(s.x[j+1]-idle.v) <= math.Abs(s.x[j]-idle.v) {
 		j++
 	}
-	g, u, used := s.widen(&w.poly, w.ordinateAt(&s, j), j, min(5, m), idle.v)
+	g, u, used := w.slopeNear(&s, j, idle.v)
 	if g > 0 {
 		r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, w.s.IdleCurrent, 1, 1)
 	}
+}
+
+// nearlyThrough reports whether more than half of the supply lies across R_L:
+// what the curve does there is the resistor's doing.
+func (w *work) nearlyThrough(i float64, j int) bool {
+	v := w.supplyAt(w.pts[j].k)
+	return w.s.Circuit == Load && i*w.s.RL > v/2
+}
+
+// slopeNear is the slope at one voltage by local cubics, which do not mind the
+// bend of a knee; in the ordinate that leaves the least uncertainty where the
+// channel is a resistor, for there the sweep passes all regions.
+func (w *work) slopeNear(s *slopePoints, j int, x float64) (g, u float64, n int) {
+	s.degree = 3
+	if !w.linear() {
+		return s.widen(&w.poly, w.ordinateAt(s, j), j, s.least, x)
+	}
+	u = math.Inf(1)
+	for _, o := range [...]ordinate{plain, root, logarithm} {
+		if v, uv, m := s.widen(&w.poly, o, j, s.least, x); m > 0 && uv < u {
+			g, u, n = v, uv, m
+		}
+	}
+	return g, u, n
 }
 
 // withGain adds the absolute uncertainty of a quantity that goes with the

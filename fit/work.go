@@ -210,7 +210,7 @@ func (w *work) gather() {
 	}
 	// Ties are ordered by current so that the result does not depend on the
 	// order in which equal gate voltages were written.
-	slices.SortStableFunc(w.pts, func(p, q point) int {
+	before := func(p, q *point) int {
 		if c := cmp.Compare(p.vg, q.vg); c != 0 {
 			return c
 		}
@@ -218,7 +218,13 @@ func (w *work) gather() {
 			return c
 		}
 		return cmp.Compare(p.l, q.l)
-	})
+	}
+	for j := 1; j < len(w.pts); j++ {
+		if before(&w.pts[j-1], &w.pts[j]) > 0 {
+			slices.SortStableFunc(w.pts, func(p, q point) int { return before(&p, &q) })
+			break
+		}
+	}
 	w.counts()
 }
 
