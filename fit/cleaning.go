@@ -62,8 +62,8 @@ func (w *work) clean() {
 	w.dropStuck()
 	w.dropGateSpikes()
 	w.dropContradictions()
-	w.dropSpikes()
 	w.mergeEqual()
+	w.dropSpikes()
 	for j := range w.pts {
 		p := &w.pts[j]
 		p.vds = w.drainVoltage(p)
@@ -125,6 +125,7 @@ func (w *work) mergeEqual() {
 		}
 		p := w.pts[j]
 		if n := float64(e - j); n > 1 {
+			w.ties = true
 			sum, uu := 0.0, 0.0
 			for _, v := range w.pts[j:e] {
 				sum += v.i
@@ -242,8 +243,9 @@ func (w *work) dropStuckGate() {
 			for _, v := range w.pts[j:e] {
 				lo, hi = math.Min(lo, v.i), math.Max(hi, v.i)
 			}
-			steepest := 1 / thermalVoltage // no transistor is steeper than an ideal exponential
-			explained := math.Exp(2*w.grid*steepest) * 1.3
+			// No transistor is steeper than an ideal exponential; three steps of the
+			// display allow for its noise.
+			explained := math.Exp(3*w.grid/thermalVoltage) * 1.3
 			if lo > 5*w.pts[j].q && hi > lo*explained && hi-lo > 10*w.pts[j].q {
 				text := "the gate reading stands at " + volts(w.gate*w.pts[j].vg) + " while the current goes from " + amps(lo) + " to " + amps(hi)
 				for k := e - 1; k >= j; k-- {

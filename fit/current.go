@@ -30,6 +30,9 @@ func (w *work) settleCurrents() {
 	if w.byDrain && !w.vddRead {
 		w.calibrateSupply()
 	}
+	if w.s.Spot && w.s.Circuit == Diode && w.byDrain {
+		w.dropAmmeter() // a spot list's current is nominal, the jig tells the true one
+	}
 	if w.ammeter && (w.byLoad || w.byDrain) {
 		w.compareMeters()
 	}
@@ -322,23 +325,24 @@ func (w *work) expected(j int) (lo, hi float64) {
 	case after >= len(w.pts):
 		return w.pts[before].i, math.Inf(1)
 	}
-	return between(&w.pts[before], &w.pts[after], w.pts[j].vg)
+	return w.between(&w.pts[before], &w.pts[after], w.pts[j].vg)
 }
 
 // between is where a transfer curve may lie at vg between two of its points:
 // its logarithm bends down and, until load or series resistance limit it, its
-// square root bends up, so it lies between the two chords.
-func between(a, b *point, vg float64) (lo, hi float64) {
+// square root bends up, so it lies between the two chords. A leakage under the
+// foot bends the logarithm up: it is taken off before.
+func (w *work) between(a, b *point, vg float64) (lo, hi float64) {
 	if !(b.vg > a.vg) {
 		return math.Min(a.i, b.i), math.Max(a.i, b.i)
 	}
 	t := (vg - a.vg) / (b.vg - a.vg)
 	ia, ib := math.Max(a.i, 0), math.Max(b.i, 0)
-	root := (1-t)*math.Sqrt(ia) + t*math.Sqrt(ib)
-	hi = root * root
+	r := (1-t)*math.Sqrt(ia) + t*math.Sqrt(ib)
+	hi = r * r
 	lo = math.Min(ia, ib)
-	if ia > 0 && ib > 0 {
-		lo = math.Exp((1-t)*math.Log(ia) + t*math.Log(ib))
+	if fa, fb := ia-w.base, ib-w.base; fa > 2*a.q+3*a.u && fa > 0.02*w.base && fb > fa {
+		lo = w.base + math.Exp((1-t)*math.Log(fa)+t*math.Log(fb))
 	}
 	if lo > hi {
 		lo, hi = hi, lo

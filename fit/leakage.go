@@ -76,7 +76,7 @@ func (w *work) judgeLeakage(i, q, abs float64) {
 		test = noTestCurrent
 	}
 	limit := math.Max(leakShare*test, leakLeast)
-	if i <= limit || i <= 5*q || i <= 3*abs {
+	if i <= limit || i <= floorCounts*q || i <= 3*abs {
 		return
 	}
 	w.warn(CodeDrainLeakage, "The drain carries "+amps(i)+" at the off voltage (more than "+amps(limit)+

@@ -257,8 +257,8 @@ func (w *work) halves(from, to int) (lower, upper float64) {
 // declineLine says why no line was laid: how the slopes of √I disagree where
 // there are only two or three.
 func (w *work) declineLine(use []int) {
-	if len(use) >= 3 {
-		s1, s2 := w.rootSlope(use[0], use[1]), w.rootSlope(use[len(use)-2], use[len(use)-1])
+	if n := len(use); n >= 3 {
+		s1, s2 := w.rootSlope(use[n-3], use[n-2]), w.rootSlope(use[n-2], use[n-1])
 		if s2 > slopesApart*s1 || s1 > slopesApart*s2 {
 			w.warn(CodeFewPoints, "The square root of the current rises by "+number(s1)+" and by "+number(s2)+
 				" √A/V between the few points: no straight line, so no extrapolated threshold.")

@@ -56,6 +56,7 @@ func (p *poly) fit(x, y, w []float64, degree int) bool {
 	for j := range m {
 		p.b[j] = 1
 	}
+	scale, span := 0.0, x[m-1]-x[0]
 	for k := 0; ; k++ {
 		b := p.b[k*m : (k+1)*m]
 		var norm, xnorm, c float64
@@ -69,9 +70,10 @@ func (p *poly) fit(x, y, w []float64, degree int) bool {
 			norm += g
 			xnorm += g * x[j]
 		}
-		if !(norm > 0) || math.IsInf(norm, 0) {
+		if !(norm > 1e-22*scale) || math.IsInf(norm, 0) {
 			return false
 		}
+		scale = norm * span * span
 		p.norm[k], p.c[k] = norm, c/norm
 		if k == degree {
 			return true

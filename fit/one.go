@@ -86,7 +86,12 @@ func (w *work) contradictory() bool {
 			n++
 		}
 	}
-	all := n + len(w.pts)
+	all := n
+	for j := range w.pts {
+		if w.pts[j].i > w.tiny && w.pts[j].above() {
+			all++
+		}
+	}
 	if n >= 3 && 5*n >= all {
 		w.warn(CodeOscillation, count(n, "point contradicts", "points contradict")+" a rising curve, as with a part that oscillates.")
 	}

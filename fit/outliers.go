@@ -26,7 +26,7 @@ func (w *work) contradicts(a, b *point) bool {
 	if fall <= 0 || b.vg-a.vg <= math.Max(1e-3, math.Max(2*w.grid, 4*a.ux)) {
 		return false // noise of the gate reading may have exchanged them
 	}
-	return fall > 5*rss(a.u, b.u)+2*(a.q+b.q)
+	return fall > 5*rss(a.u, b.u)+2*(a.q+b.q)+2*w.tiny
 }
 
 // dropContradictions leaves out, worst first, the points that contradict most
@@ -34,8 +34,11 @@ func (w *work) contradicts(a, b *point) bool {
 // would ruin whatever is fitted to it.
 func (w *work) dropContradictions() {
 	n := len(w.pts)
+	w.tiny = w.leastOfInterest()
 	top, falls := math.Inf(-1), false
+	w.base = math.Inf(1)
 	for j := range w.pts {
+		w.base = math.Min(w.base, math.Max(0, w.pts[j].i))
 		top = math.Max(top, w.pts[j].i)
 		falls = falls || top-w.pts[j].i > fallTolerance*math.Abs(top)
 	}
@@ -111,7 +114,7 @@ func (w *work) excess(j int) float64 {
 	case j == len(p)-1:
 		return outside(p[j].i, p[j-1].i, math.Inf(1))
 	}
-	lo, hi := between(&p[j-1], &p[j+1], p[j].vg)
+	lo, hi := w.between(&p[j-1], &p[j+1], p[j].vg)
 	return outside(p[j].i, lo, hi)
 }
 
@@ -123,7 +126,6 @@ func (w *work) dropSpikes() {
 		return
 	}
 	limit := 0.0
-	w.tiny = w.leastOfInterest()
 	for tries := 0; tries < 1+len(w.pts)/8; tries++ {
 		worst, by := -1, 0.0
 		for j := 1; j < len(w.pts); j++ {
@@ -137,6 +139,9 @@ func (w *work) dropSpikes() {
 		}
 		if limit == 0 {
 			limit = math.Max(8*w.roughness(), leastJump)
+			if w.ties {
+				limit = math.Max(limit, 3*w.grid)
+			}
 		}
 		if w.beyond(worst) <= limit {
 			return
@@ -165,7 +170,7 @@ func (w *work) spike(j int) float64 {
 		lo = math.Min(lo, p[j-1].i) // it may have come to its limit
 		noise = rss(noise, p[j-1].u)
 	} else {
-		lo, hi = between(&p[j-1], &p[j+1], p[j].vg)
+		lo, hi = w.between(&p[j-1], &p[j+1], p[j].vg)
 		noise = rss(noise, rss(p[j-1].u, p[j+1].u))
 	}
 	e := outside(p[j].i, lo, hi)
@@ -191,14 +196,23 @@ func (w *work) spike(j int) float64 {
 	if math.Max(hi, p[j].i) < w.tiny {
 		return 0
 	}
+	if j+2 < len(p) && flatAfter(&p[j], &p[j+1], &p[j+2]) && p[j].i >= p[j-1].i && p[j].i <= p[j+1].i {
+		return 0 // the last step before the corner of a load line
+	}
 	if math.IsInf(e, 1) { // reads zero or less
 		return 10
 	}
 	return e
 }
 
-// leastOfInterest is the current below which shape does not matter: leakage and
-// foot mix there in ways that look like spikes and change no result.
+// flatAfter reports whether the curve rises from a to b but hardly from b to c.
+func flatAfter(a, b, c *point) bool {
+	return c.i-b.i < 0.2*(b.i-a.i)*(c.vg-b.vg)/(b.vg-a.vg)
+}
+
+// leastOfInterest is the current below which shape does not matter: leakage,
+// foot and the meter's own noise mix there in ways that look like faults and
+// change no result.
 func (w *work) leastOfInterest() float64 {
 	least := math.Inf(1)
 	for _, i := range [...]float64{w.s.TestCurrent, w.s.IdleCurrent} {
@@ -213,7 +227,7 @@ func (w *work) leastOfInterest() float64 {
 		}
 		least /= 10
 	}
-	return least / 1000
+	return least / 100
 }
 
 // continued is where the curve lies at vg, outside a…b, when it goes on as
@@ -257,7 +271,7 @@ func (w *work) beyond(j int) float64 {
 		lo, hi = continued(&p[j-2], &p[j-1], p[j].vg)
 		lo = math.Min(lo, p[j-1].i)
 	} else {
-		lo, hi = between(&p[j-1], &p[j+1], p[j].vg)
+		lo, hi = w.between(&p[j-1], &p[j+1], p[j].vg)
 	}
 	return w.displaced(j, math.Min(math.Max(p[j].i, lo), hi))
 }
@@ -267,7 +281,7 @@ func (w *work) beyond(j int) float64 {
 func (w *work) roughness() float64 {
 	r := make([]float64, 0, len(w.pts))
 	for j := 1; j < len(w.pts)-1; j++ {
-		lo, hi := between(&w.pts[j-1], &w.pts[j+1], w.pts[j].vg)
+		lo, hi := w.between(&w.pts[j-1], &w.pts[j+1], w.pts[j].vg)
 		if !(lo > 5*w.pts[j].q) || !(lo > 0) {
 			continue
 		}
@@ -336,12 +350,16 @@ func (w *work) fits(j int, vg, i float64) bool {
 	if a < 0 || b < 0 {
 		return false
 	}
-	lo, hi := between(&p[a], &p[b], vg)
+	lo, hi := w.between(&p[a], &p[b], vg)
 	return i > 3*p[j].q && outside(i, lo, hi) < tolerance
 }
 
+// rangeReach is how near, in points, a change of range must be to be blamed: the
+// step of the display is known to three points only.
+const rangeReach = quantaSpan + 1
+
 // rangeChange reports whether the step of the display, or the range by the
-// accuracy statement, changes within two points of j.
+// accuracy statement, changes near point j.
 func (w *work) rangeChange(j int) bool {
 	lo, hi := math.Inf(1), 0.0
 	tops := [2]float64{math.Inf(1), 0}
@@ -349,7 +367,7 @@ func (w *work) rangeChange(j int) bool {
 	if w.onLoad || !w.ammeter {
 		ranges, unit = w.s.Load, w.s.RL
 	}
-	for k := max(0, j-2); k <= min(len(w.pts)-1, j+2); k++ {
+	for k := max(0, j-rangeReach); k <= min(len(w.pts)-1, j+rangeReach); k++ {
 		p := &w.pts[k]
 		if k != j { // its own digits and range may be those of the fault
 			t := rangeFor(ranges, p.i*unit).Top

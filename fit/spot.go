@@ -6,6 +6,12 @@ const (
 	// spotNear is how far, relative, a spot's current may lie from the one asked
 	// for and still be its value; two counts count as well.
 	spotNear = 0.01
+	// spotLoose is how far a spot's current may lie from the one asked for and the
+	// reading still stand in for it, with spotSlope, V, per unit of relative
+	// difference as uncertainty: the square law gives half the overdrive, and 0.4 V
+	// is a large one for a bias current (judgement).
+	spotLoose = 0.10
+	spotSlope = 0.2
 	// spotStep is the greatest ratio of currents over which a given g_m corrects
 	// a spot.
 	spotStep = 2.0
@@ -22,7 +28,9 @@ func (w *work) isSpot() bool { return len(w.pts) <= 2 }
 // The value at a current is the reading itself where its current is within 1 %
 // or two counts; between two readings the rule of [work.gateAt]; else, with a
 // given g_m, one step of it along the square law for at most a factor of two in
-// current. Anything else declines. Uncertainty: the step of the display and the
+// current; else, within 10 %, the reading with what that may be worth added to
+// its uncertainty. Anything else declines. A one-resistor jig does not hold its
+// current: with V_DD and R_L known it is (V_DD - V_GS)/R_L of each part. Uncertainty: the step of the display and the
 // stated noise; the display is taken to have two decimals at least.
 //
 // Source: common practice, no source. Checked: TestSpots.
@@ -120,7 +128,15 @@ func (w *work) spotAt(i float64) Quantity {
 		w.warn(CodeSpotOnly, "Read at "+amps(p.i)+"; carried to "+amps(i)+" by the given transconductance, "+
 			si(w.gate*step, "V")+".")
 		// A given g_m is taken to be good to a tenth.
-		return w.gateQuantity(p.vg+step, math.Hypot(w.spotU(p), 0.1*step), w.spotGainError(p, i), 1)
+		return w.gateQuantity(p.vg+step, rss(w.spotU(p), 0.1*step), w.spotGainError(p, i), 1)
+	}
+	p := &w.pts[0]
+	if len(w.pts) == 2 && math.Abs(w.pts[1].i-i) < math.Abs(p.i-i) {
+		p = &w.pts[1]
+	}
+	if d := math.Abs(p.i-i) / i; d <= spotLoose {
+		w.warn(CodeSpotOnly, "Read at "+amps(p.i)+", not at "+amps(i)+": "+si(spotSlope*d, "V")+" of uncertainty for that.")
+		return w.gateQuantity(p.vg, rss(w.spotU(p), spotSlope*d), w.spotGainError(p, i), 1)
 	}
 	return None()
 }
@@ -131,7 +147,7 @@ func (w *work) spotBetween(a, b *point, i float64) Quantity {
 	c.b = 1
 	w.bounds(&c, i, 0)
 	t := (c.v - a.vg) / (b.vg - a.vg)
-	u := math.Hypot(c.u, math.Hypot((1-t)*w.spotU(a), t*w.spotU(b)))
+	u := rss(c.u, rss((1-t)*w.spotU(a), t*w.spotU(b)))
 	w.warn(CodeCoarseNearCurrent, "Interpolated between "+amps(a.i)+" and "+amps(b.i)+" for "+amps(i)+".")
 	return w.gateQuantity(c.v, u, c.u, 2)
 }
@@ -185,7 +201,7 @@ func (w *work) spotGain(r *Result) {
 	}
 	d := b.vg - a.vg
 	g := (b.i - a.i) / d
-	u := math.Hypot(g*math.Hypot(w.spotU(a), w.spotU(b))/d, math.Hypot(a.u, b.u)/d)
+	u := rss(g*rss(w.spotU(a), w.spotU(b))/d, rss(a.u, b.u)/d)
 	r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: 2}, i, 1, 1)
 	w.warn(CodeSpotOnly, "Transconductance is the secant between "+amps(a.i)+" and "+amps(b.i)+".")
 }

@@ -18,6 +18,8 @@ const (
 	// does, for no sound part is fully on there and yet unmoved.
 	offNear = 0.5
 	offFar  = 2.0
+	// shortSiemens is the conductance that no sound part reaches within offFar.
+	shortSiemens = 10.0
 	// A body diode in forward direction, V.
 	diodeLow  = 0.35
 	diodeHigh = 1.1
@@ -58,7 +60,7 @@ func (w *work) dead() (State, string) {
 	if w.s.Circuit == Diode {
 		return w.deadDiode()
 	}
-	if !(low > 0.5*high) || !(low > 5*w.pts[0].q) {
+	if !(low > 0.5*high && low < 2*high) || !(low > 5*w.pts[0].q) {
 		return "", ""
 	}
 	if low < w.s.TestCurrent/2 && !w.wentWellUp() {
@@ -80,16 +82,28 @@ func (w *work) deadOn(low, high float64, third int) (State, string) {
 	vLow, vHigh := w.medianDrain(0, third), w.medianDrain(len(w.pts)-third, len(w.pts))
 	diode := vLow >= diodeLow && vLow <= diodeHigh && !(vHigh > vLow+0.15)
 	steady := math.Abs(w.medianDrain(third, 2*third)-vLow) < 0.1*vLow
-	unmoved := math.Abs(high-low) <= math.Max(0.005*high, 3*w.pts[0].q)
+	step := math.Max(0.005*high, 3*w.pts[0].q)
+	unmoved := math.Abs(high-low) <= step && w.tooGood(high, step)
 	switch {
 	case diode && (w.startsOff(offNear) || w.startsOff(offFar) && steady):
 		return WrongWayRound, "At the off voltage " + si(vLow, "V") + " remain between drain and source, a body diode's forward voltage: drain and source are exchanged."
-	case w.startsOff(offNear) && low > 0.9*high:
+	case w.startsOff(offNear) && math.Abs(high-low) < 0.1*high:
 		return Shorted, w.shortSentence(low, vLow)
 	case w.startsOff(offFar) && unmoved:
 		return Shorted, w.shortSentence(low, vLow)
 	}
 	return "", ""
+}
+
+// tooGood reports whether a part fully on at the first point would conduct
+// better than any sound one does so near its off voltage. Behind a large load
+// resistor a sound part that is on cannot be told from a short: the resistor
+// carries the whole supply either way, within the given step of current.
+func (w *work) tooGood(i, step float64) bool {
+	if w.s.Circuit != Load {
+		return true
+	}
+	return positive(w.s.RL) && i/(step*w.s.RL) >= shortSiemens
 }
 
 func (w *work) shortSentence(i, vds float64) string {
@@ -180,7 +194,7 @@ func (w *work) wentWellUp() bool {
 	top := w.pts[len(w.pts)-1].vg
 	switch limit := math.Abs(w.s.VgsthMax); {
 	case w.s.Depletion:
-		return top >= -noDrain // a depletion part conducts with its gate at 0 V
+		return top >= -offReach // a depletion part conducts with its gate at 0 V
 	case positive(limit):
 		return top >= limit
 	}

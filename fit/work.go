@@ -30,6 +30,8 @@ type work struct {
 	vddRead bool    // V_DD was read point by point
 	least   float64 // V, lower bound of the supply from the greatest V_L; NaN
 
+	ties    bool    // several points share a gate reading: its display is coarse against the steps
+	base    float64 // A, smallest current of the curve if above zero: leakage
 	tiny    float64 // A, current below which no spikes are looked for
 	falling bool    // the current falls as the gate is driven harder
 
@@ -172,7 +174,7 @@ func (w *work) gather() {
 	w.ammeter = len(w.c.Id) > 0
 	w.byLoad = positive(rl) && len(w.c.Vl) > 0
 	w.byDrain = positive(rl) && !w.byLoad && w.vdd > 0 &&
-		(w.s.Circuit == Load && len(w.c.Vd) > 0 || w.s.Circuit == Diode)
+		(w.s.Circuit == Load && len(w.c.Vd) > 0 || w.s.Circuit == Diode && (w.vddRead || w.s.Spot))
 	for k := range n {
 		vg := w.c.Vg[k]
 		if !finiteNumber(vg) {
@@ -248,6 +250,10 @@ func (w *work) leaveUnread(k int, x float64) {
 	w.leave(k, CodeMissingReading, "no reading")
 }
 
+// fewestForDigits is the fewest currents whose digits tell the step of the
+// display: "0.2" alone is not a reading of one digit.
+const fewestForDigits = 8
+
 // counts finds the step of each display at every point: as stated for the
 // range, or as its digits show where they are coarser. A gate grid may be set
 // rather than read, so its digits count only where nothing is stated.
@@ -257,32 +263,35 @@ func (w *work) counts() {
 		return
 	}
 	x, q, place := make([]float64, n), make([]float64, n), make([]int8, n)
-	each := func(read func(p *point) float64, set func(p *point, q float64)) {
+	each := func(fewest int, read func(p *point) float64, set func(p *point, q float64)) {
 		for j := range w.pts {
 			x[j] = read(&w.pts[j])
 		}
-		quanta(x, q, place)
+		clear(q)
+		if n >= fewest {
+			quanta(x, q, place)
+		}
 		for j := range w.pts {
 			set(&w.pts[j], q[j])
 		}
 	}
 	rl := w.s.RL
 	if w.ammeter {
-		each(func(p *point) float64 { return at(w.c.Id, p.k) }, func(p *point, q float64) {
+		each(fewestForDigits, func(p *point) float64 { return at(w.c.Id, p.k) }, func(p *point, q float64) {
 			p.qa = max(q, rangeFor(w.s.Current, p.a).Resolution)
 		})
 	}
 	if w.byLoad {
-		each(func(p *point) float64 { return at(w.c.Vl, p.k) }, func(p *point, q float64) {
+		each(fewestForDigits, func(p *point) float64 { return at(w.c.Vl, p.k) }, func(p *point, q float64) {
 			p.ql = max(q, rangeFor(w.s.Load, p.l*rl).Resolution) / rl
 		})
 	}
 	if w.byDrain {
-		each(func(p *point) float64 { return w.drainAt(p.k) }, func(p *point, q float64) {
+		each(fewestForDigits, func(p *point) float64 { return w.drainAt(p.k) }, func(p *point, q float64) {
 			p.ql = max(q, rangeFor(w.s.Drain, w.drainAt(p.k)).Resolution) / rl
 		})
 	}
-	each(func(p *point) float64 { return p.vg }, func(p *point, q float64) {
+	each(1, func(p *point) float64 { return p.vg }, func(p *point, q float64) {
 		a := rangeFor(w.s.Gate, p.vg)
 		p.ux = random(a.Resolution, a.Noise)
 		w.grid = max(w.grid, q)
