@@ -4,7 +4,7 @@ package fit
 type CodeInfo struct {
 	Code    string
 	Meaning string // one sentence
-	Next    string // what to do next
+	Next    string // what to do next, one sentence
 }
 
 // The codes of warnings and flags.
@@ -40,8 +40,140 @@ const (
 	CodeOverload           = "overload"        // point left out: meter over its range
 	CodeMissingReading     = "missing-reading" // point left out: nothing written
 	CodeDecadeSpike        = "decade-spike"    // point left out: ten times too large or small
+	CodeOutOfLine          = "out-of-line"     // point left out: contradicts a rising curve
+	CodeSignTurned         = "sign-turned"     // readings carry the other sign than the part's current
+	CodeFallingCurve       = "falling-curve"   // less current with more gate drive
 	CodeNoCircuit          = "no-circuit"      // circuit not given
 	CodeNoAccuracy         = "no-accuracy"     // no accuracy statement: no absolute uncertainty
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
 )
+
+// Codes is the register of all codes, each with what it means and what to do
+// next.
+var Codes = []CodeInfo{
+	{CodeOffFamilyThreshold,
+		"The threshold or gate bias lies outside the limits of its lot.",
+		"Measure the device again; if it stays, keep it out of matched sets and ask where it came from."},
+	{CodeOffFamilyGain,
+		"The gain factor or transconductance lies outside the limits of its lot, as another die at the same threshold would.",
+		"Measure the device again at the idle current and do not pair it with the rest of the lot."},
+	{CodeOffFamilyCurve,
+		"The shape of the whole transfer curve differs from that of the lot.",
+		"Compare the curve with the lot's overlay and measure it again with slower steps."},
+	{CodeTwoPopulations,
+		"The lot falls into two groups with a gap between them.",
+		"Treat the groups as two lots, ask the supplier, and measure every device."},
+	{CodeDrainLeakage,
+		"Drain current flows at the off voltage: the part is leaky or its gate is not at its off voltage.",
+		"Check that the gate really is at its off voltage, then measure again; keep a leaky part out of use."},
+	{CodeOpen,
+		"No drain current flows anywhere although the gate was driven well up.",
+		"Check drain, source and gate leads and the socket; if they are good the part is dead."},
+	{CodeShorted,
+		"The drain current does not depend on the gate: drain and source are joined.",
+		"Check the socket for a short, then discard the part."},
+	{CodeWrongWayRound,
+		"The body diode conducts: drain and source are exchanged, or the drain supply has the wrong polarity.",
+		"Turn the part round or correct the supply, and measure again."},
+	{CodeAboveRange,
+		"The part does not reach the current within the sweep.",
+		"Sweep to a higher gate voltage, within the part's limits, or ask for a smaller current."},
+	{CodeFewPoints,
+		"There are too few points for this number.",
+		"Take more points in the region named."},
+	{CodeSubThresholdOnly,
+		"The points lie below or at the knee only, where no straight line is to be expected.",
+		"Sweep to a higher current, or use the constant-current value."},
+	{CodeNotSaturated,
+		"The drain voltage is too small against the overdrive for this method at the points named.",
+		"Raise the drain supply or use a smaller load resistor."},
+	{CodeCoarseNearCurrent,
+		"The points near the current asked for lie too far apart to interpolate well.",
+		"Take steps of 10 mV or less around that gate voltage."},
+	{CodeHeating,
+		"Up and down sweep differ by more than their uncertainty: the part warms up, or drifts.",
+		"Measure faster, pulsed or with less drain voltage, or improve the cooling."},
+	{CodeHeatingNotChecked,
+		"There is no sweep in the other direction, so heating could not be checked.",
+		"Sweep down as well as up."},
+	{CodeOscillation,
+		"The current jumps from point to point as it does when the part oscillates.",
+		"Put a resistor or bead at the gate, shorten the leads, decouple the drain, and measure again."},
+	{CodeSweepsDisagree,
+		"Sweeps of the same device differ by more than their uncertainty; the first up sweep was used.",
+		"Find out what changed between the sweeps (contact, temperature, wrong device) and measure again."},
+	{CodeSameRows,
+		"The same block of readings stands under two names.",
+		"Find out which device the readings belong to and exclude the other."},
+	{CodeModelMisfit,
+		"The equation of the transistor does not describe this curve.",
+		"Look at the curve: heating, oscillation or a range error bends it; use the constant-current value."},
+	{CodeRangeGlitch,
+		"A reading jumps where the meter changed its range, and was left out.",
+		"Wait for the meter to settle after a range change, or hold the range."},
+	{CodeStuckReading,
+		"A reading stands still while the gate moves, and was left out.",
+		"Check the meter's connection, hold key and battery, or the limit of the supply."},
+	{CodeCurrentMismatch,
+		"The measured current and the one from the load resistor disagree.",
+		"Check the load resistor's value, its heating and the leads, and the ammeter's fuse and range."},
+	{CodePrefixLost,
+		"The measured current is a thousand times that of the load resistor, or a thousandth: a unit prefix was lost.",
+		"Correct the unit of the current column and import it again."},
+	{CodeSpotOnly,
+		"The device was read at one or two currents only: no curve, and nothing is known of heating.",
+		"Take a sweep when the shape of the curve or other currents matter."},
+	{CodeBenchLimited,
+		"The meters cannot resolve this number.",
+		"Use a finer range, or a current of more counts."},
+	{CodeNTooSmall,
+		"There are too few devices for this statement.",
+		"Measure more devices."},
+	{CodeManyCrossings,
+		"The curve crosses the current more than once.",
+		"Look for noise, hysteresis or oscillation around that gate voltage."},
+	{CodeBelowSweep,
+		"The part already carries more than the current asked for at the first point.",
+		"Start the sweep at a lower gate voltage, or ask for a larger current."},
+	{CodeOverload,
+		"A meter was beyond its range, and the point was left out.",
+		"Use a larger range."},
+	{CodeMissingReading,
+		"A reading is missing, and the point was left out.",
+		"Nothing, when the rest of the curve is whole; otherwise measure again."},
+	{CodeDecadeSpike,
+		"A reading is ten times too large or too small, and was left out.",
+		"Nothing, when the rest of the curve is whole; otherwise check the meter's range."},
+	{CodeOutOfLine,
+		"A reading contradicts its neighbours on a rising curve, and was left out.",
+		"Measure again when there are several; look for a loose contact."},
+	{CodeSignTurned,
+		"The readings carry the opposite sign of the part's current; their magnitudes were used.",
+		"Nothing, when the meter's leads were exchanged; otherwise check the channel type."},
+	{CodeFallingCurve,
+		"The current falls as the gate is driven harder.",
+		"Check the channel type and the sign of the gate voltage."},
+	{CodeNoCircuit,
+		"The circuit is not known, so only constant-current values are given.",
+		"Give the circuit: load, diode or fixed."},
+	{CodeNoAccuracy,
+		"An accuracy statement is missing, so the absolute uncertainty is not known.",
+		"Give the bench file with the meters' accuracy and the tolerance of the load resistor."},
+	{CodeOverdue,
+		"A meter's calibration is overdue.",
+		"Have the meter calibrated, or compare it with one that is."},
+	{CodeUnlikeConditions,
+		"The values were taken under unlike conditions.",
+		"Compare only values of the same circuit, current, temperature and definition."},
+}
+
+// Explain finds the entry of a code in [Codes]; false when there is none.
+func Explain(code string) (CodeInfo, bool) {
+	for _, c := range Codes {
+		if c.Code == code {
+			return c, true
+		}
+	}
+	return CodeInfo{}, false
+}

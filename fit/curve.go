@@ -52,6 +52,7 @@ type Setup struct {
 	TestCurrent float64 // A
 	IdleCurrent float64 // A
 	MaxID       float64 // A, limit of the part
+	VgsthMax    float64 // V, greatest V_GS(th) of the data sheet; NaN or 0: not known
 
 	Gate, Current, Load, Drain []Accuracy // by range, ascending by Top; nil: nothing known
 

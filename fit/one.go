@@ -1,0 +1,240 @@
+package fit
+
+import "math"
+
+// One evaluates one sweep: threshold and gate bias by constant current,
+// extrapolated threshold and gain factor in the region the points are in,
+// transconductance and drain leakage, each with its uncertainties, the number
+// of points behind it and what must be said of it. A curve of one or two points
+// is a spot. c is not modified.
+//
+// A part that does nothing a transistor does, and readings that cannot be
+// believed, give a state with one sentence and no numbers. Currents asked for
+// that are not positive are not looked for.
+func One(c Curve, s Setup) Result {
+	w := newWork(c, s)
+	r := NewResult()
+	w.settleCurrents()
+	w.evaluate(&r)
+	r.LeftOut, r.Warnings = w.sortedLeft(), w.warns
+	return r
+}
+
+func (w *work) evaluate(r *Result) {
+	if state, why := w.dead(); state != "" {
+		r.State, r.Why = state, why
+		if code := stateCode(state); code != "" {
+			w.warn(code, why)
+		}
+		w.tellLeftOut()
+		return
+	}
+	w.clean()
+	if w.falling {
+		r.State = Declined
+		r.Why = "The current falls as the gate is driven harder: check the channel type and the sign of the gate voltage."
+		w.warn(CodeFallingCurve, r.Why)
+		return
+	}
+	if len(w.pts) == 0 {
+		r.State, r.Why = Declined, "No point has a reading that can be used."
+		w.warn(CodeFewPoints, r.Why)
+		return
+	}
+	if w.contradictory() {
+		r.State = Declined
+		r.Why = "Too many readings contradict a rising curve."
+		return
+	}
+	w.tellAccuracy()
+	if w.isSpot() {
+		w.spot(r)
+		if r.Vt.Ok() || r.Vgsth.Ok() || r.VgsIdle.Ok() {
+			r.Method = "current"
+		}
+		if code := stateCode(r.State); code != "" {
+			w.warn(code, r.Why)
+		}
+		return
+	}
+	w.byCurrent(r)
+	w.leakage(r)
+	w.extrapolated(r)
+}
+
+// stateCode is the warning that goes with a state.
+func stateCode(s State) string {
+	switch s {
+	case Open:
+		return CodeOpen
+	case Shorted:
+		return CodeShorted
+	case WrongWayRound:
+		return CodeWrongWayRound
+	case Above:
+		return CodeAboveRange
+	}
+	return ""
+}
+
+// contradictory reports whether so many points were left out that the rest
+// cannot be trusted either, and warns of oscillation from a fifth on.
+func (w *work) contradictory() bool {
+	n := 0
+	for _, l := range w.left {
+		if l.Code == CodeOutOfLine || l.Code == CodeRangeGlitch {
+			n++
+		}
+	}
+	all := n
+	for j := range w.pts {
+		if w.pts[j].i > w.tiny && w.pts[j].above() {
+			all++
+		}
+	}
+	if n >= 3 && 5*n >= all {
+		w.warn(CodeOscillation, count(n, "point contradicts", "points contradict")+" a rising curve, as with a part that oscillates.")
+	}
+	return n >= 3 && 5*n > 2*all
+}
+
+// tellAccuracy says which statement is missing for an absolute uncertainty.
+func (w *work) tellAccuracy() {
+	missing := ""
+	if p := w.pts[len(w.pts)-1]; math.IsNaN(rangeFor(w.s.Gate, p.vg).absolute(p.vg)) {
+		missing = "the gate meter's accuracy"
+	}
+	if math.IsNaN(w.relativeUsed(w.pts[len(w.pts)-1].i)) {
+		if missing != "" {
+			missing += " and "
+		}
+		onLoad := w.onLoad || !w.ammeter
+		switch {
+		case !onLoad:
+			missing += "the ammeter's accuracy"
+		case math.IsNaN(w.s.RLTol):
+			missing += "the tolerance of R_L"
+		default:
+			missing += "the accuracy of the meter at the load resistor"
+		}
+	}
+	if missing != "" {
+		w.warn(CodeNoAccuracy, "Not given: "+missing+"; no absolute uncertainty.")
+	}
+}
+
+// byCurrent fills in the gate voltages at the test and the idle current, and
+// what depends on them.
+func (w *work) byCurrent(r *Result) {
+	test, idle := w.gateAt(w.s.TestCurrent), w.gateAt(w.s.IdleCurrent)
+	r.Crossings = test.count
+	r.Vgsth = w.crossingQuantity(test, w.s.TestCurrent)
+	r.VgsIdle = w.crossingQuantity(idle, w.s.IdleCurrent)
+	w.transconductances(r, idle)
+
+	why := ""
+	if positive(w.s.TestCurrent) {
+		why = w.tellCrossing(test, w.s.TestCurrent)
+	}
+	if positive(w.s.IdleCurrent) && w.s.IdleCurrent != w.s.TestCurrent {
+		if more := w.tellCrossing(idle, w.s.IdleCurrent); why == "" || idle.never {
+			why = more
+		}
+	}
+	switch {
+	case test.never || idle.never:
+		r.State, r.Why = Above, why
+		w.warn(CodeAboveRange, why)
+	case r.Vgsth.Ok() || r.VgsIdle.Ok():
+		r.State = Measured
+	case why != "":
+		r.State, r.Why = Declined, why
+	default:
+		r.State, r.Why = Declined, "No current was asked for."
+	}
+	if r.Vgsth.Ok() {
+		w.diodeLike(test.v)
+	}
+}
+
+// crossingQuantity makes a quantity of a crossing: the gate meter's statement
+// and the current's over the slope go into the absolute uncertainty.
+func (w *work) crossingQuantity(c crossing, i float64) Quantity {
+	if math.IsNaN(c.v) {
+		return None()
+	}
+	return w.gateQuantity(c.v, c.u, w.relativeUsed(i)*i/c.gm, c.n)
+}
+
+// tellCrossing warns of what is wrong with a crossing and gives the sentence
+// for the state when it has no value.
+func (w *work) tellCrossing(c crossing, i float64) (why string) {
+	first, last := &w.pts[0], &w.pts[len(w.pts)-1]
+	switch {
+	case c.below:
+		why = "The part already carries " + amps(first.i) + " at the first point, " + volts(w.gate*first.vg) + ", more than " + amps(i) + "."
+		w.warn(CodeBelowSweep, why)
+		return why
+	case c.never:
+		top := math.Inf(-1)
+		for j := range w.pts {
+			top = math.Max(top, w.pts[j].i)
+		}
+		return "The part reaches " + amps(top) + " at the end of the sweep, " + volts(w.gate*last.vg) + ", not " + amps(i) + "."
+	case c.limited:
+		why = amps(i) + " is below three counts of the meter"
+		if math.IsNaN(c.v) {
+			why += ": no value."
+		} else {
+			why += "; read off by continuing the curve above it."
+		}
+		w.warn(CodeBenchLimited, why)
+		return why
+	}
+	if c.coarse {
+		p := &w.pts[c.b-1]
+		q := &w.pts[c.b]
+		w.warn(CodeCoarseNearCurrent, "Near "+amps(i)+" the points lie "+si(q.vg-p.vg, "V")+" apart ("+amps(p.i)+" and "+amps(q.i)+").")
+	}
+	if c.count > 1 {
+		w.warn(CodeManyCrossings, "The curve crosses "+amps(i)+" upward "+count(c.count, "time", "times")+" between "+
+			volts(w.gate*c.lo)+" and "+volts(w.gate*c.hi)+" ("+si(c.hi-c.lo, "V")+"): noise, hysteresis or oscillation.")
+	}
+	return ""
+}
+
+// extrapolated fills in the thresholds that are valid in the region the points
+// are in, and chooses the one to show: the ratio where the channel is a
+// resistor, the square-root line where it is saturated.
+func (w *work) extrapolated(r *Result) {
+	if r.Vgsth.Ok() || r.VgsIdle.Ok() {
+		r.Method = "current"
+	}
+	set := func(method string, t Threshold) {
+		if r.VtBy == nil {
+			r.VtBy = make(map[string]Threshold, 2)
+		}
+		r.VtBy[method] = t
+		r.Vt, r.Beta, r.Method = t.Vt, t.Beta, method
+	}
+	switch {
+	case w.s.Circuit == NoCircuit:
+		w.warn(CodeNoCircuit, "The circuit is not given: constant-current values only.")
+	case w.s.Circuit == Fixed && w.fixedVds() < unreadVds:
+		curve, ok := w.resistiveCurve()
+		if !ok {
+			return
+		}
+		if t, ok := w.tangent(curve); ok {
+			set("linear", t)
+		}
+		if t, theta, ok := w.ratioMethod(curve); ok {
+			set("ratio", t)
+			r.Theta = theta
+		}
+	default:
+		if t, ok := w.squareRoot(); ok {
+			set("sqrt", t)
+		}
+	}
+}

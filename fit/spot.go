@@ -1,0 +1,233 @@
+package fit
+
+import "math"
+
+const (
+	// spotNear is how far, relative, a spot's current may lie from the one asked
+	// for and still be its value; two counts count as well.
+	spotNear = 0.01
+	// spotLoose is how far a spot's current may lie from the one asked for and the
+	// reading still stand in for it, with spotSlope, V, per unit of relative
+	// difference as uncertainty: the square law gives half the overdrive, and 0.4 V
+	// is a large one for a bias current (judgement).
+	spotLoose = 0.10
+	spotSlope = 0.2
+	// spotStep is the greatest ratio of currents over which a given g_m corrects
+	// a spot.
+	spotStep = 2.0
+	// spotPlaces is the least number of decimals, of a volt, that a spot's
+	// display is taken to have: a trailing zero does not show.
+	spotPlaces = 2
+)
+
+// isSpot reports whether the curve is one or two readings rather than a sweep.
+func (w *work) isSpot() bool { return len(w.pts) <= 2 }
+
+// spot evaluates one or two readings of V_GS at known currents.
+//
+// The value at a current is the reading itself where its current is within 1 %
+// or two counts; between two readings the rule of [work.gateAt]; else, with a
+// given g_m, one step of it along the square law for at most a factor of two in
+// current; else, within 10 %, the reading with what that may be worth added to
+// its uncertainty. Anything else declines. A one-resistor jig does not hold its
+// current: with V_DD and R_L known it is (V_DD - V_GS)/R_L of each part. Uncertainty: the step of the display and the
+// stated noise; the display is taken to have two decimals at least.
+//
+// Source: common practice, no source. Checked: TestSpots.
+func (w *work) spot(r *Result) {
+	w.warn(CodeSpotOnly, "Read at "+count(len(w.pts), "current", "currents")+" only: nothing is known of the curve or of heating.")
+	state, why := w.deadSpot()
+	if state != "" {
+		r.State, r.Why = state, why
+		return
+	}
+	r.Vgsth = w.spotAt(w.s.TestCurrent)
+	r.VgsIdle = w.spotAt(w.s.IdleCurrent)
+	w.spotGain(r)
+	asked, got := 0, 0
+	for _, x := range [...]struct {
+		i float64
+		q Quantity
+	}{{w.s.TestCurrent, r.Vgsth}, {w.s.IdleCurrent, r.VgsIdle}} {
+		if !positive(x.i) {
+			continue
+		}
+		asked++
+		if x.q.Ok() {
+			got++
+		}
+	}
+	switch {
+	case got > 0:
+		r.State = Measured
+		if got < asked {
+			w.warn(CodeFewPoints, w.spotReason())
+		}
+		if r.Vgsth.Ok() {
+			w.diodeLike(w.sign * r.Vgsth.Value)
+		}
+	case asked == 0:
+		r.State, r.Why = Declined, "No current was asked for."
+	default:
+		r.State, r.Why = Declined, w.spotReason()
+	}
+}
+
+func (w *work) spotReason() string {
+	asked := amps(w.s.TestCurrent)
+	if !positive(w.s.TestCurrent) {
+		asked = amps(w.s.IdleCurrent)
+	} else if positive(w.s.IdleCurrent) {
+		asked += " or " + amps(w.s.IdleCurrent)
+	}
+	read := amps(w.pts[0].i)
+	if len(w.pts) > 1 {
+		read += " and " + amps(w.pts[1].i)
+	}
+	return "Read at " + read + ", which does not reach to " + asked + "."
+}
+
+// spotU is the random uncertainty of the gate reading of a spot, V.
+func (w *work) spotU(p *point) float64 {
+	if p.ux > 0 {
+		return p.ux
+	}
+	return random(math.Min(math.Max(w.grid, 1e-9), pow10(-spotPlaces)), 0)
+}
+
+// spotAt is the gate voltage at current i, as a quantity.
+func (w *work) spotAt(i float64) Quantity {
+	if !positive(i) {
+		return None()
+	}
+	near := -1
+	for j := range w.pts {
+		p := &w.pts[j]
+		if d := math.Abs(p.i - i); (d <= spotNear*i || d <= 2*p.q && d <= 0.1*i) && (near < 0 || d < math.Abs(w.pts[near].i-i)) {
+			near = j
+		}
+	}
+	if near >= 0 {
+		p := &w.pts[near]
+		return w.gateQuantity(p.vg, w.spotU(p), w.spotGainError(p, i), 1)
+	}
+	if len(w.pts) == 2 {
+		a, b := &w.pts[0], &w.pts[1]
+		if a.i > 0 && a.i < i && b.i > i && b.vg > a.vg {
+			return w.spotBetween(a, b, i)
+		}
+	}
+	for j := range w.pts {
+		p := &w.pts[j]
+		gm := math.Abs(at(w.c.Gm, p.k))
+		if !positive(gm) || !(p.i > 0) || p.i > spotStep*i || i > spotStep*p.i {
+			continue
+		}
+		// Square law: √I is straight with slope g_m/(2√I).
+		step := (math.Sqrt(i*p.i) - p.i) * 2 / gm
+		w.warn(CodeSpotOnly, "Read at "+amps(p.i)+"; carried to "+amps(i)+" by the given transconductance, "+
+			si(w.gate*step, "V")+".")
+		// A given g_m is taken to be good to a tenth.
+		return w.gateQuantity(p.vg+step, rss(w.spotU(p), 0.1*step), w.spotGainError(p, i), 1)
+	}
+	p := &w.pts[0]
+	if len(w.pts) == 2 && math.Abs(w.pts[1].i-i) < math.Abs(p.i-i) {
+		p = &w.pts[1]
+	}
+	if d := math.Abs(p.i-i) / i; d <= spotLoose {
+		w.warn(CodeSpotOnly, "Read at "+amps(p.i)+", not at "+amps(i)+": "+si(spotSlope*d, "V")+" of uncertainty for that.")
+		return w.gateQuantity(p.vg, rss(w.spotU(p), spotSlope*d), w.spotGainError(p, i), 1)
+	}
+	return None()
+}
+
+// spotBetween interpolates between two readings; the two rules bound the truth.
+func (w *work) spotBetween(a, b *point, i float64) Quantity {
+	c := noCrossing()
+	c.b = 1
+	w.bounds(&c, i, 0)
+	t := (c.v - a.vg) / (b.vg - a.vg)
+	u := rss(c.u, rss((1-t)*w.spotU(a), t*w.spotU(b)))
+	w.warn(CodeCoarseNearCurrent, "Interpolated between "+amps(a.i)+" and "+amps(b.i)+" for "+amps(i)+".")
+	return w.gateQuantity(c.v, u, c.u, 2)
+}
+
+// spotGainError is the gate voltage that the uncertainty of the current stands
+// for, V; NaN without a transconductance or a statement.
+func (w *work) spotGainError(p *point, i float64) float64 {
+	rel := w.relativeUsed(i)
+	gm := math.Abs(at(w.c.Gm, p.k))
+	if positive(gm) {
+		return rel * i / gm
+	}
+	if len(w.pts) == 2 {
+		if a, b := &w.pts[0], &w.pts[1]; b.i > a.i && b.vg > a.vg {
+			return rel * i * (b.vg - a.vg) / (b.i - a.i)
+		}
+	}
+	// The square law with 0.3 V overdrive: v/2 per unit of relative current.
+	return rel * 0.15
+}
+
+// spotGain fills in the transconductance at the idle current: as given at about
+// that current, else the secant between two readings around it. Without an idle
+// current it is that at the test current.
+func (w *work) spotGain(r *Result) {
+	i := w.s.IdleCurrent
+	if !positive(i) {
+		i = w.s.TestCurrent
+	}
+	if !positive(i) {
+		return
+	}
+	for j := range w.pts {
+		p := &w.pts[j]
+		gm := math.Abs(at(w.c.Gm, p.k))
+		if positive(gm) && math.Abs(p.i-i) <= 0.05*i {
+			q := None()
+			q.Value, q.N = gm, 1
+			q.U = random(spotGmStep(gm), 0)
+			r.GmIdle = q
+			w.warn(CodeSpotOnly, "Transconductance as given at "+amps(p.i)+".")
+			return
+		}
+	}
+	if len(w.pts) < 2 {
+		return
+	}
+	a, b := &w.pts[0], &w.pts[1]
+	if !(b.vg > a.vg) || !(b.i > a.i) || i < a.i*(1-spotNear) || i > b.i*(1+spotNear) {
+		return
+	}
+	d := b.vg - a.vg
+	g := (b.i - a.i) / d
+	u := rss(g*rss(w.spotU(a), w.spotU(b))/d, rss(a.u, b.u)/d)
+	r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: 2}, i, 1, 1)
+	w.warn(CodeSpotOnly, "Transconductance is the secant between "+amps(a.i)+" and "+amps(b.i)+".")
+}
+
+// spotGmStep is the step of a given transconductance by its digits.
+func spotGmStep(gm float64) float64 {
+	d, ok := decimals(gm)
+	if !ok {
+		return 0
+	}
+	return pow10(-d)
+}
+
+// deadSpot judges one or two readings. With drain and gate tied, a part that
+// cannot be brought above a small voltage is shorted, one that takes the whole
+// supply without current is open.
+func (w *work) deadSpot() (State, string) {
+	p := &w.pts[len(w.pts)-1]
+	if w.s.Circuit != Diode && !(w.s.Spot && w.s.Circuit == NoCircuit) || w.s.Depletion {
+		return "", ""
+	}
+	if math.Abs(p.vg) < noDrain && p.i > 0 {
+		return Shorted, "Only " + si(w.gate*p.vg, "V") + " at " + amps(p.i) + ": drain and source are joined."
+	}
+	if w.vdd > 0 && p.vg > 0.98*w.vdd {
+		return Open, "The whole supply of " + si(w.vdd, "V") + " lies across the part: no current flows, it is open."
+	}
+	return "", ""
+}
