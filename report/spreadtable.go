@@ -76,6 +76,26 @@ func SummaryScale(k fit.Key, m lot.Summary) Scale {
 	return ScaleOf(KeyOf(k).Unit, m.Median, m.Mean, m.Max)
 }
 
+// limitScale is the prefix for limits: that of the summary beside them, or
+// their own where there is none.
+func limitScale(k fit.Key, m lot.Summary, l lot.Limit) Scale {
+	if m.N > 0 {
+		return SummaryScale(k, m)
+	}
+	return ScaleOf(KeyOf(k).Unit, l.Low, l.High)
+}
+
+// LimitTexts writes the two limits of a quantity with the digits of the spread
+// beside them, and the unit with its prefix.
+func LimitTexts(k fit.Key, m lot.Summary, l lot.Limit) (low, high, unit string) {
+	sc := limitScale(k, m, l)
+	se := StandardError(m)
+	if !isNumber(se) {
+		se = (l.High - l.Low) / 20 // no spread to go by: a tenth of half the range
+	}
+	return sc.FormatNumber(l.Low, se, 0), sc.FormatNumber(l.High, se, 0), sc.Unit(KeyOf(k).Unit)
+}
+
 func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
 	heads := []string{"n", "above", "median", "robust sd", "mean", "± (mean)", "sd", "least", "greatest"}
 	cells := make([][]string, len(heads))
@@ -108,18 +128,12 @@ func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
 
 func limitGrid(s Sheet, style Style) grid {
 	var names, units, lows, highs, ks, bases []string
-	for _, k := range fit.Keys {
-		l, ok := s.Spread.Limits[k]
-		if !ok {
-			continue
-		}
+	for _, k := range KeysIn(s.Spread.Limits) {
+		l := s.Spread.Limits[k]
 		m := s.Spread.Summary[k]
-		sc := SummaryScale(k, m)
-		se := StandardError(m)
-		names = append(names, KeyOf(k).Symbol)
-		units = append(units, sc.Unit(KeyOf(k).Unit))
-		lows = append(lows, sc.FormatNumber(l.Low, se, 0))
-		highs = append(highs, sc.FormatNumber(l.High, se, 0))
+		low, high, unit := LimitTexts(k, m, l)
+		names, units = append(names, KeyOf(k).Symbol), append(units, unit)
+		lows, highs = append(lows, low), append(highs, high)
 		ks = append(ks, kWords(l.K))
 		bases = append(bases, Clean(l.Basis))
 	}

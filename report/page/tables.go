@@ -59,20 +59,15 @@ func (v *view) spread(k *known) {
 		}
 	}
 	l := &table{Caption: "Limits behind the flags", Heads: []head{{"quantity", false}, {"unit", false}, {"low", true}, {"high", true}, {"× robust sd", true}, {"basis", false}}}
-	for _, key := range fit.Keys {
-		lim, ok := k.Spread.Limits[key]
-		if !ok {
-			continue
-		}
-		m := k.Spread.Summary[key]
-		sc, se := report.SummaryScale(key, m), report.StandardError(m)
+	for _, key := range report.KeysIn(k.Spread.Limits) {
+		lim := k.Spread.Limits[key]
+		low, high, unit := report.LimitTexts(key, k.Spread.Summary[key], lim)
 		width := report.NotAvailable
 		if isNumber(lim.K) {
 			width = "± " + strconv.FormatFloat(lim.K, 'g', 3, 64)
 		}
 		l.Rows = append(l.Rows, []cell{
-			{Text: rich(k.KeyPhrase(key)), Head: true}, text(sc.Unit(report.KeyOf(key).Unit)),
-			number(sc.FormatNumber(lim.Low, se, 0)), number(sc.FormatNumber(lim.High, se, 0)), number(width), text(lim.Basis),
+			{Text: rich(k.KeyPhrase(key)), Head: true}, text(unit), number(low), number(high), number(width), text(lim.Basis),
 		})
 	}
 	if len(l.Rows) > 0 {
