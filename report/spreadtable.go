@@ -91,7 +91,7 @@ func LimitTexts(k fit.Key, m lot.Summary, l lot.Limit) (low, high, unit string) 
 	sc := limitScale(k, m, l)
 	se := StandardError(m)
 	if !isNumber(se) {
-		se = (l.High - l.Low) / 20 // no spread to go by: a tenth of half the range
+		se = (l.High - l.Low) / 8 // no spread to go by: two digits of a quarter of half the range
 	}
 	return sc.FormatNumber(l.Low, se, 0), sc.FormatNumber(l.High, se, 0), sc.Unit(KeyOf(k).Unit)
 }
