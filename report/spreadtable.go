@@ -39,10 +39,10 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	if s.Spread.Estimator != "" {
-		wrapped(p, "", "", "Robust sd: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
+		wrapped(p, "", "", "Robust estimator: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
 	}
 	if sp := s.Spread.Split; sp != nil {
-		wrapped(p, "", "  ", fmt.Sprintf("Two populations: %s", Clean(sp.Text)), style.Width)
+		wrapped(p, "", "  ", "Two populations: "+Clean(sp.Text), style.Width)
 		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
 		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
 	}
@@ -171,7 +171,7 @@ func flags(p *printer, s Sheet, style Style) {
 		}
 		name := Clean(v.Name)
 		for _, r := range v.Reasons {
-			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(r.Text), Clean(r.Code)), style.Width)
+			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(Sentence(r.Text)), Clean(r.Code)), style.Width)
 		}
 		if len(v.Reasons) == 0 {
 			p.line("  %s", style.paint(name, red))

@@ -265,6 +265,23 @@ func AmountWords(a record.Amount) string {
 	return FormatGiven(a.Value, a.Unit)
 }
 
+// Sentence gives words the form of a sentence, for standing beside others: a
+// capital at its head, unless the first word is a symbol, and a mark at its end.
+func Sentence(words string) string {
+	words = strings.TrimSpace(words)
+	if words == "" {
+		return ""
+	}
+	first, _, _ := strings.Cut(words, " ")
+	if strings.Trim(first, "abcdefghijklmnopqrstuvwxyz,:") == "" {
+		words = strings.ToUpper(words[:1]) + words[1:]
+	}
+	if !strings.ContainsAny(words[len(words)-1:], ".!?:") {
+		words += "."
+	}
+	return words
+}
+
 // namesWords lists names, at most limit of them.
 func namesWords(names []string, limit int) string {
 	rest := 0

@@ -45,7 +45,7 @@ func (v *view) spread(k *known) {
 	if len(t.Rows) > 0 {
 		note := "± (mean) is the standard uncertainty of the mean, sd/√n. Devices above the range count as above every value in medians."
 		if k.Spread.Estimator != "" {
-			note = "Robust sd: " + k.Spread.Estimator + ". " + note
+			note = "Robust estimator: " + report.Sentence(k.Spread.Estimator) + " " + note
 		}
 		t.Note = rich(note)
 		v.Spread = t
@@ -105,7 +105,7 @@ func (v *view) bins(k *known) {
 	t.Note = rich(note + " A device within 2 standard uncertainties of an edge names the bin across it as well.")
 	v.Bins = t
 	for _, u := range k.Unsorted() {
-		v.Unsorted = append(v.Unsorted, named{Name: report.Clean(u.Name), Texts: []template.HTML{rich(u.Why)}})
+		v.Unsorted = append(v.Unsorted, named{Name: report.Clean(u.Name), Texts: []template.HTML{rich(report.Sentence(u.Why))}})
 	}
 }
 
@@ -116,7 +116,7 @@ func (v *view) flags(k *known) {
 		}
 		n := named{Name: report.Clean(vd.Name)}
 		for _, r := range vd.Reasons {
-			text := rich(r.Text)
+			text := rich(report.Sentence(r.Text))
 			if next := k.Advice(r.Code).Next; next != "" {
 				text += " " + rich(next)
 			} else if next := stateNext(r.Code); next != "" {
@@ -167,7 +167,7 @@ func (v *view) leftOut(k *known) {
 				if n := sw.Line(l.Index); n > 0 {
 					line = number(strconv.Itoa(n))
 				}
-				t.Rows = append(t.Rows, []cell{nameCell(d.Name), number(strconv.Itoa(j + 1)), number(strconv.Itoa(l.Index + 1)), line, at(sw.Curve.Vg, l.Index), at(id, l.Index), {Text: rich(l.Text) + " (" + plain(l.Code) + ")"}})
+				t.Rows = append(t.Rows, []cell{nameCell(d.Name), number(strconv.Itoa(j + 1)), number(strconv.Itoa(l.Index + 1)), line, at(sw.Curve.Vg, l.Index), at(id, l.Index), {Text: rich(report.Sentence(l.Text)) + " (" + plain(l.Code) + ")"}})
 			}
 		}
 	}
