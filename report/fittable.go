@@ -132,7 +132,7 @@ func notMeasured(p *printer, s Sheet, style Style) {
 		g := group{state: state}
 		for _, d := range s.Devices {
 			if d.State() == state {
-				g.lines = append(g.lines, fmt.Sprintf("%s: %s", Clean(d.Name), Clean(d.Reason())))
+				g.lines = append(g.lines, fmt.Sprintf("%s: %s", Clean(d.Name), Clean(Sentence(d.Reason()))))
 			}
 		}
 		if len(g.lines) > 0 {
@@ -244,7 +244,7 @@ func remarks(p *printer, s Sheet, style Style) {
 		}
 		head := fmt.Sprintf("%s (%s)", Clean(g.Code), who)
 		if g.Meaning != "" {
-			head += ": " + Clean(g.Meaning)
+			head += ": " + Clean(Sentence(g.Meaning))
 		}
 		wrapped(p, "  ", "    ", head, style.Width)
 		if g.Next != "" {
@@ -256,7 +256,7 @@ func remarks(p *printer, s Sheet, style Style) {
 // warnings writes warnings of the lot as a whole.
 func lotWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
 	for _, w := range list {
-		wrapped(p, "", "  ", fmt.Sprintf("%s (%s)", Clean(w.Text), Clean(w.Code)), style.Width)
+		wrapped(p, "", "  ", fmt.Sprintf("%s (%s)", Clean(Sentence(w.Text)), Clean(w.Code)), style.Width)
 		if next := s.Advice(w.Code).Next; next != "" {
 			wrapped(p, "  next: ", "  ", Clean(next), style.Width)
 		}

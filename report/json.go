@@ -95,24 +95,24 @@ func (t optional) MarshalJSON() ([]byte, error) {
 	return bytes.TrimSuffix(buf.Bytes(), []byte("\n")), err
 }
 
-// byKey is a JSON object keyed by quantity, in the order of fit.Keys.
+// byKey is a JSON object keyed by quantity, in the order of [KeysIn].
 type byKey[V any] map[fit.Key]V
 
 func (m byKey[V]) MarshalJSON() ([]byte, error) {
 	buf := []byte{'{'}
-	for _, k := range fit.Keys {
-		v, ok := m[k]
-		if !ok {
-			continue
-		}
+	for _, k := range KeysIn(m) {
 		if len(buf) > 1 {
 			buf = append(buf, ',')
 		}
-		body, err := json.Marshal(v)
+		name, err := json.Marshal(k)
 		if err != nil {
 			return nil, err
 		}
-		buf = append(append(append(append(buf, '"'), k...), '"', ':'), body...)
+		body, err := json.Marshal(m[k])
+		if err != nil {
+			return nil, err
+		}
+		buf = append(append(append(buf, name...), ':'), body...)
 	}
 	return append(buf, '}'), nil
 }

@@ -98,6 +98,17 @@ func TestKeysOfTheContract(t *testing.T) {
 		shapeOf(t, func(w io.Writer) error { return report.ImportJSON(w, doc) }))
 }
 
+// A quantity that only limits know is passed on, behind the others.
+func TestLimitsOfOtherQuantities(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 8, Points: 30, Clean: true})
+	s.Spread.Limits["gate_span_V"] = lot.Limit{K: 6, Basis: "this lot", Low: 0.38, High: 0.46}
+	doc := decode[struct {
+		Limits map[string]struct{ Low float64 }
+	}](t, func(w io.Writer) error { return report.SpreadJSON(w, s) })
+	require.Equal(t, 0.38, doc.Limits["gate_span_V"].Low)
+	require.Regexp(t, `(?m)^gate span +mV +380 +460 +± 6 +this lot$`, show(t, report.SpreadTable, s, report.Style{}))
+}
+
 // Edges of transconductance are not volts and their keys do not say so.
 func TestSortedByTransconductance(t *testing.T) {
 	s := invented.Lot(invented.Options{Devices: 8, Points: 30, Clean: true})

@@ -44,7 +44,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 		p.line("")
 		p.line("%s", style.paint(fmt.Sprintf("In no bin: %d", len(left)), bold))
 		for _, u := range left {
-			wrapped(p, "  ", "    ", Clean(u.Name)+": "+Clean(u.Why), style.Width)
+			wrapped(p, "  ", "    ", Clean(u.Name)+": "+Clean(Sentence(u.Why)), style.Width)
 		}
 	}
 	return p.err

@@ -39,10 +39,10 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	if s.Spread.Estimator != "" {
-		wrapped(p, "", "", "Robust sd: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
+		wrapped(p, "", "", "Robust estimator: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
 	}
 	if sp := s.Spread.Split; sp != nil {
-		wrapped(p, "", "  ", fmt.Sprintf("Two populations: %s", Clean(sp.Text)), style.Width)
+		wrapped(p, "", "  ", "Two populations: "+Clean(sp.Text), style.Width)
 		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
 		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
 	}
@@ -74,6 +74,26 @@ func StandardError(m lot.Summary) float64 {
 // SummaryScale is the prefix for all numbers of one summary.
 func SummaryScale(k fit.Key, m lot.Summary) Scale {
 	return ScaleOf(KeyOf(k).Unit, m.Median, m.Mean, m.Max)
+}
+
+// limitScale is the prefix for limits: that of the summary beside them, or
+// their own where there is none.
+func limitScale(k fit.Key, m lot.Summary, l lot.Limit) Scale {
+	if m.N > 0 {
+		return SummaryScale(k, m)
+	}
+	return ScaleOf(KeyOf(k).Unit, l.Low, l.High)
+}
+
+// LimitTexts writes the two limits of a quantity with the digits of the spread
+// beside them, and the unit with its prefix.
+func LimitTexts(k fit.Key, m lot.Summary, l lot.Limit) (low, high, unit string) {
+	sc := limitScale(k, m, l)
+	se := StandardError(m)
+	if !isNumber(se) {
+		se = (l.High - l.Low) / 8 // no spread to go by: two digits of a quarter of half the range
+	}
+	return sc.FormatNumber(l.Low, se, 0), sc.FormatNumber(l.High, se, 0), sc.Unit(KeyOf(k).Unit)
 }
 
 func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
@@ -108,18 +128,12 @@ func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
 
 func limitGrid(s Sheet, style Style) grid {
 	var names, units, lows, highs, ks, bases []string
-	for _, k := range fit.Keys {
-		l, ok := s.Spread.Limits[k]
-		if !ok {
-			continue
-		}
+	for _, k := range KeysIn(s.Spread.Limits) {
+		l := s.Spread.Limits[k]
 		m := s.Spread.Summary[k]
-		sc := SummaryScale(k, m)
-		se := StandardError(m)
-		names = append(names, KeyOf(k).Symbol)
-		units = append(units, sc.Unit(KeyOf(k).Unit))
-		lows = append(lows, sc.FormatNumber(l.Low, se, 0))
-		highs = append(highs, sc.FormatNumber(l.High, se, 0))
+		low, high, unit := LimitTexts(k, m, l)
+		names, units = append(names, KeyOf(k).Symbol), append(units, unit)
+		lows, highs = append(lows, low), append(highs, high)
 		ks = append(ks, kWords(l.K))
 		bases = append(bases, Clean(l.Basis))
 	}
@@ -157,7 +171,7 @@ func flags(p *printer, s Sheet, style Style) {
 		}
 		name := Clean(v.Name)
 		for _, r := range v.Reasons {
-			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(r.Text), Clean(r.Code)), style.Width)
+			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(Sentence(r.Text)), Clean(r.Code)), style.Width)
 		}
 		if len(v.Reasons) == 0 {
 			p.line("  %s", style.paint(name, red))

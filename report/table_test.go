@@ -152,7 +152,7 @@ func TestWhatCouldNotBeHadHasItsReason(t *testing.T) {
 		if d.State() == fit.Measured {
 			continue
 		}
-		require.Contains(t, text, "  "+d.Name+": "+d.Reason(), "no reason for %s", d.State())
+		require.Contains(t, text, "  "+d.Name+": "+report.Sentence(d.Reason()), "no reason for %s", d.State())
 		if d.State() == fit.Above {
 			require.Regexp(t, `(?m)^`+d.Name+` +above +above`, text)
 		}
@@ -187,6 +187,15 @@ func TestEveryStateHasItsWords(t *testing.T) {
 		if state != fit.Measured && state != fit.Excluded {
 			require.NotEmpty(t, w.Next, "nothing to do about %q", state)
 		}
+	}
+}
+
+func TestSentence(t *testing.T) {
+	for in, want := range map[string]string{
+		"gate bias is 2.98 V, 403 mV below": "Gate bias is 2.98 V, 403 mV below.", "g_m is low": "g_m is low.", "It leaks.": "It leaks.",
+		"V_T is off": "V_T is off.", "": "", "why not?": "Why not?", "3 of 4": "3 of 4.",
+	} {
+		require.Equal(t, want, report.Sentence(in))
 	}
 }
 

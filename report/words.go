@@ -3,6 +3,7 @@ package report
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -27,6 +28,28 @@ var keyInfos = map[fit.Key]KeyInfo{
 	fit.KeyGmMax:   {"g_m(max)", "S", "S", "greatest transconductance"},
 	fit.KeyGmIdle:  {"g_m(idle)", "S", "S", "transconductance at the idle current"},
 	fit.KeyIdss:    {"I_DSS", "A", "A", "drain leakage"},
+	keySpan:        {"gate span", "V", "V", "gate span from the test current to the idle current"},
+}
+
+// keySpan is a quantity that only limits of a spread know.
+const keySpan fit.Key = "gate_span_V"
+
+// KeysIn lists the keys of a map by quantity in the order in which they are
+// shown: those of fit.Keys first, then the others by name.
+func KeysIn[V any](m map[fit.Key]V) []fit.Key {
+	var keys, others []fit.Key
+	for _, k := range fit.Keys {
+		if _, ok := m[k]; ok {
+			keys = append(keys, k)
+		}
+	}
+	for k := range m {
+		if !slices.Contains(fit.Keys, k) {
+			others = append(others, k)
+		}
+	}
+	slices.Sort(others)
+	return append(keys, others...)
 }
 
 // KeyOf tells how a quantity is called. A key that is not known keeps its own
@@ -240,6 +263,23 @@ func AmountWords(a record.Amount) string {
 		return strconv.FormatFloat(a.Value, 'g', -1, 64) + " u"
 	}
 	return FormatGiven(a.Value, a.Unit)
+}
+
+// Sentence gives words the form of a sentence, for standing beside others: a
+// capital at its head, unless the first word is a symbol, and a mark at its end.
+func Sentence(words string) string {
+	words = strings.TrimSpace(words)
+	if words == "" {
+		return ""
+	}
+	first, _, _ := strings.Cut(words, " ")
+	if strings.Trim(first, "abcdefghijklmnopqrstuvwxyz,:") == "" {
+		words = strings.ToUpper(words[:1]) + words[1:]
+	}
+	if !strings.ContainsAny(words[len(words)-1:], ".!?:") {
+		words += "."
+	}
+	return words
 }
 
 // namesWords lists names, at most limit of them.

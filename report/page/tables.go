@@ -45,7 +45,7 @@ func (v *view) spread(k *known) {
 	if len(t.Rows) > 0 {
 		note := "± (mean) is the standard uncertainty of the mean, sd/√n. Devices above the range count as above every value in medians."
 		if k.Spread.Estimator != "" {
-			note = "Robust sd: " + k.Spread.Estimator + ". " + note
+			note = "Robust estimator: " + report.Sentence(k.Spread.Estimator) + " " + note
 		}
 		t.Note = rich(note)
 		v.Spread = t
@@ -59,20 +59,15 @@ func (v *view) spread(k *known) {
 		}
 	}
 	l := &table{Caption: "Limits behind the flags", Heads: []head{{"quantity", false}, {"unit", false}, {"low", true}, {"high", true}, {"× robust sd", true}, {"basis", false}}}
-	for _, key := range fit.Keys {
-		lim, ok := k.Spread.Limits[key]
-		if !ok {
-			continue
-		}
-		m := k.Spread.Summary[key]
-		sc, se := report.SummaryScale(key, m), report.StandardError(m)
+	for _, key := range report.KeysIn(k.Spread.Limits) {
+		lim := k.Spread.Limits[key]
+		low, high, unit := report.LimitTexts(key, k.Spread.Summary[key], lim)
 		width := report.NotAvailable
 		if isNumber(lim.K) {
 			width = "± " + strconv.FormatFloat(lim.K, 'g', 3, 64)
 		}
 		l.Rows = append(l.Rows, []cell{
-			{Text: rich(k.KeyPhrase(key)), Head: true}, text(sc.Unit(report.KeyOf(key).Unit)),
-			number(sc.FormatNumber(lim.Low, se, 0)), number(sc.FormatNumber(lim.High, se, 0)), number(width), text(lim.Basis),
+			{Text: rich(k.KeyPhrase(key)), Head: true}, text(unit), number(low), number(high), number(width), text(lim.Basis),
 		})
 	}
 	if len(l.Rows) > 0 {
@@ -110,7 +105,7 @@ func (v *view) bins(k *known) {
 	t.Note = rich(note + " A device within 2 standard uncertainties of an edge names the bin across it as well.")
 	v.Bins = t
 	for _, u := range k.Unsorted() {
-		v.Unsorted = append(v.Unsorted, named{Name: report.Clean(u.Name), Texts: []template.HTML{rich(u.Why)}})
+		v.Unsorted = append(v.Unsorted, named{Name: report.Clean(u.Name), Texts: []template.HTML{rich(report.Sentence(u.Why))}})
 	}
 }
 
@@ -121,7 +116,7 @@ func (v *view) flags(k *known) {
 		}
 		n := named{Name: report.Clean(vd.Name)}
 		for _, r := range vd.Reasons {
-			text := rich(r.Text)
+			text := rich(report.Sentence(r.Text))
 			if next := k.Advice(r.Code).Next; next != "" {
 				text += " " + rich(next)
 			} else if next := stateNext(r.Code); next != "" {
@@ -172,7 +167,7 @@ func (v *view) leftOut(k *known) {
 				if n := sw.Line(l.Index); n > 0 {
 					line = number(strconv.Itoa(n))
 				}
-				t.Rows = append(t.Rows, []cell{nameCell(d.Name), number(strconv.Itoa(j + 1)), number(strconv.Itoa(l.Index + 1)), line, at(sw.Curve.Vg, l.Index), at(id, l.Index), {Text: rich(l.Text) + " (" + plain(l.Code) + ")"}})
+				t.Rows = append(t.Rows, []cell{nameCell(d.Name), number(strconv.Itoa(j + 1)), number(strconv.Itoa(l.Index + 1)), line, at(sw.Curve.Vg, l.Index), at(id, l.Index), {Text: rich(report.Sentence(l.Text)) + " (" + plain(l.Code) + ")"}})
 			}
 		}
 	}

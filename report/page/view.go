@@ -93,7 +93,7 @@ type remark struct {
 }
 
 func newRemark(g report.RemarkGroup) remark {
-	r := remark{Code: report.Clean(g.Code), Who: "every measured device", Meaning: rich(g.Meaning), Next: rich(g.Next)}
+	r := remark{Code: report.Clean(g.Code), Who: "every measured device", Meaning: rich(report.Sentence(g.Meaning)), Next: rich(g.Next)}
 	if !g.All {
 		r.Who, r.Names = plural(len(g.Devices), "device"), report.Clean(strings.Join(g.Devices, ", "))
 	}
@@ -276,7 +276,7 @@ func (v *view) summary(k *known) {
 
 func (v *view) alerts(k *known) {
 	if sp := k.Spread.Split; sp != nil {
-		v.Alerts = append(v.Alerts, alert{Text: richf("Two populations: %s", sp.Text), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
+		v.Alerts = append(v.Alerts, alert{Text: rich("Two populations: " + report.Sentence(sp.Text)), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
 	}
 	warnings := slices.Clone(k.Spread.Warnings)
 	if k.Sorting != nil {
@@ -290,7 +290,7 @@ func (v *view) alerts(k *known) {
 		if w.Code == fit.CodeTwoPopulations && k.Spread.Split != nil {
 			continue
 		}
-		v.Alerts = append(v.Alerts, alert{Text: rich(w.Text), Next: rich(k.Advice(w.Code).Next)})
+		v.Alerts = append(v.Alerts, alert{Text: rich(report.Sentence(w.Text)), Next: rich(k.Advice(w.Code).Next)})
 	}
 	for _, m := range instruments(k.Sheet) {
 		if m.overdue != "" {
