@@ -143,7 +143,12 @@ func FuzzRead(f *testing.F) {
 			opt.Map = map[string]string{"device": "1", "vg": "2", "id": "3"}
 		}
 		if flags&32 != 0 {
-			opt.Ask = func(q Question) (string, error) { return q.Choices[len(data)%len(q.Choices)], nil }
+			opt.Ask = func(q Question) (string, error) {
+				if len(q.Choices) == 0 {
+					return "10mA", nil
+				}
+				return q.Choices[len(data)%len(q.Choices)], nil
+			}
 		}
 		opt.PChannel = flags&64 != 0
 		if flags&128 != 0 {

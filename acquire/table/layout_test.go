@@ -39,6 +39,13 @@ D1 up vg_v[4.1,5,6] id_a[0.3,0.31,0.4]`},
 		{"long, lot, package and side", "x.csv", "lot,package,side,vg_V,id_A,device\nL1,F1,a,2,0.1,T1\nL1,F1,a,3,0.2,T1\nL1,F1,a,4,0.3,T1\nL2,F1,B,2,0.1,T1\nL2,F1,B,3,0.2,T1\nL2,F1,B,4,0.3,T1\n", Options{}, "long", `
 T1/L1/F1/A up vg_v[2,3,4] id_a[0.1,0.2,0.3]
 T1/L2/F1/B up vg_v[2,3,4] id_a[0.1,0.2,0.3]`},
+		{"two in a package", "x.csv", "package,device,vgs_at_10mA_V\nF1,T1,2\nF1,T2,3\n", Options{}, "spot", `
+T1/F1 spot vg_v[2] id_a[10e-3]
+T2/F1 spot vg_v[3] id_a[10e-3]`},
+		{"the package is the outline", "x.csv", "package,device,vgs_at_10mA_V\nTO-220,T1,2\nTO-220,T2,3\nTO-220,T3,4\n", Options{}, "spot", `
+T1 spot vg_v[2] id_a[10e-3]
+T2 spot vg_v[3] id_a[10e-3]
+T3 spot vg_v[4] id_a[10e-3]`},
 		{"long, lot column by flag", "x.csv", "bag,device,vg_V,id_A,reel\nx,D1,2,0.1,R7\nx,D1,3,0.2,R7\nx,D1,4,0.2,R7\n", Options{LotColumn: "reel"}, "long", `
 D1/R7 up vg_v[2,3,4] id_a[0.1,0.2,0.2]`},
 		{"long, temperature and time", "x.csv", "device,t (s),vg_V,id_A,T [°C]\nD1,0,2,0.1,25.0\nD1,1.5,3,0.2,25.1\nD1,3,4,0.3,25.3\n", Options{}, "long", `

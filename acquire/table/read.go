@@ -22,12 +22,12 @@ const (
 
 // Codes of the remarks of this package.
 const (
-	CodeSameRows      = "same-rows"       // one block of rows under two devices
-	CodeFlagWins      = "flag-wins"       // a flag contradicts the file
-	CodeUnitDoubtful  = "unit-doubtful"   // no bench gives such numbers in that unit
-	CodeTalkDiffers   = "talk-differs"    // two comments contradict one another
-	CodeCutOff        = "cut-off"         // the file seems to end too early
-	CodeColumnNotUsed = "column-not-used" // a column in a unit that is not read
+	CodeSameRows       = "same-rows"       // one block of rows under two devices
+	CodeFlagWins       = "flag-wins"       // a flag contradicts the file
+	CodeUnitDoubtful   = "unit-doubtful"   // no bench gives such numbers in that unit
+	CodeCommentsDiffer = "comments-differ" // two comments contradict one another
+	CodeCutOff         = "cut-off"         // the file seems to end too early
+	CodeColumnNotUsed  = "column-not-used" // a column in a unit that is not read
 )
 
 // reader is one file while it is read. Its steps run once, in the order of

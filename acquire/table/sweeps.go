@@ -322,6 +322,7 @@ func (r *reader) finish() error {
 		return err
 	}
 	r.settleSpots()
+	r.settlePackages()
 	r.settleConditions()
 	for i := range f.Sweeps {
 		s := &f.Sweeps[i]
@@ -381,5 +382,38 @@ func (r *reader) settleSpots() {
 	for i := range f.Sweeps {
 		s := &f.Sweeps[i]
 		s.Direction = record.Spot
+	}
+}
+
+// settlePackages takes a package column for the outline (TO-220), and leaves it
+// out, when it has no sides beside it and one package would hold more than two
+// devices.
+func (r *reader) settlePackages() {
+	c := r.first(string(RolePackage))
+	if c == nil || c.how == "--map" || r.first(string(RoleSide)) != nil {
+		return
+	}
+	type in struct{ lot, pkg string }
+	held := map[in]map[string]bool{}
+	outline := false
+	for i := range r.file.Sweeps {
+		s := &r.file.Sweeps[i]
+		if s.Package == "" {
+			continue
+		}
+		k := in{s.Lot, s.Package}
+		if held[k] == nil {
+			held[k] = map[string]bool{}
+		}
+		held[k][s.Device] = true
+		outline = outline || len(held[k]) > 2
+	}
+	if !outline {
+		return
+	}
+	c.as = string(RoleIgnore)
+	r.note("column %s is not used: it names the outline, since more than two devices share one", c.title())
+	for i := range r.file.Sweeps {
+		r.file.Sweeps[i].Package = ""
 	}
 }

@@ -150,7 +150,7 @@ func talkDevice(text string) (name string, rank int) {
 // decimal mark are known.
 func (r *reader) readTalk() {
 	r.talkCond, r.talkText, r.file.Proposed = record.Condition{}, map[Role]string{}, nil
-	r.file.Remarks = slices.DeleteFunc(r.file.Remarks, func(m Remark) bool { return m.Code == CodeTalkDiffers })
+	r.file.Remarks = slices.DeleteFunc(r.file.Remarks, func(m Remark) bool { return m.Code == CodeCommentsDiffer })
 	best := 2
 	for _, t := range r.talk {
 		for _, s := range listen(t.text) {
@@ -241,7 +241,7 @@ func (r *reader) proposeNumber(line int, s said) {
 func (r *reader) proposeNum(line int, name string, x float64, dim string, to *record.Num) {
 	if have, ok := to.Get(); ok {
 		if have != x {
-			r.remark(CodeTalkDiffers, "line %d says %s %g %s, a line above says %g: the first is kept", line, name, x, dim, have)
+			r.remark(CodeCommentsDiffer, "line %d says %s %g %s, a line above says %g: the first is kept", line, name, x, dim, have)
 		}
 		return
 	}
@@ -256,7 +256,7 @@ func (r *reader) proposeText(line int, name, value string, to *string) {
 		*to = value
 		r.proposed(line, name, value)
 	case *to != value:
-		r.remark(CodeTalkDiffers, "line %d says %s %s, a line above says %s: the first is kept", line, name, value, *to)
+		r.remark(CodeCommentsDiffer, "line %d says %s %s, a line above says %s: the first is kept", line, name, value, *to)
 	}
 }
 

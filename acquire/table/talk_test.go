@@ -95,7 +95,7 @@ func TestFlagsWinOverComments(t *testing.T) {
 
 func TestCommentsThatContradictEachOther(t *testing.T) {
 	f := mustRead(t, "x.csv", "# VDD = 12 V\n"+talkBody+"# VDD = 13 V\n", Options{})
-	if f.Sweeps[0].Condition.VDD != record.Known(12) || !hasRemark(f, CodeTalkDiffers, "line 6 says V_DD 13 V") {
+	if f.Sweeps[0].Condition.VDD != record.Known(12) || !hasRemark(f, CodeCommentsDiffer, "line 6 says V_DD 13 V") {
 		t.Errorf("%+v %+v", f.Sweeps[0].Condition, f.Remarks)
 	}
 }
