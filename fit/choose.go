@@ -1,8 +1,5 @@
 package fit
 
-// CodeMethodNotValid: the method asked for has no value in the region covered.
-const CodeMethodNotValid = "method-not-valid"
-
 // Choose makes the extrapolated threshold of one method the one that is shown:
 // "sqrt", "linear" or "ratio"; "current" shows none, "auto" leaves the choice
 // by region as it is. Where the method is not valid for the points, the

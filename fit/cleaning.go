@@ -258,9 +258,6 @@ func (w *work) dropStuckGate() {
 	}
 }
 
-// thermalVoltage is kT/q at 300 K, V.
-const thermalVoltage = 0.025852
-
 // dropGateSpikes finds a gate reading ten times too large at the end of the
 // sweep, where no current contradicts it.
 func (w *work) dropGateSpikes() {

@@ -47,6 +47,15 @@ const (
 	CodeNoAccuracy         = "no-accuracy"     // no accuracy statement: no absolute uncertainty
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
+	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
+	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
+
+	// Raised when files are read.
+	CodeFlagWins       = "flag-wins"
+	CodeUnitDoubtful   = "unit-doubtful"
+	CodeCommentsDiffer = "comments-differ"
+	CodeCutOff         = "cut-off"
+	CodeColumnNotUsed  = "column-not-used"
 )
 
 // Codes is the register of all codes, each with what it means and what to do
@@ -166,6 +175,27 @@ var Codes = []CodeInfo{
 	{CodeUnlikeConditions,
 		"The values were taken under unlike conditions.",
 		"Compare only values of the same circuit, current, temperature and definition."},
+	{CodeMethodNotValid,
+		"The method asked for has no value in the region that the points cover.",
+		"Leave the method to be chosen by the region, or sweep the region that the method needs."},
+	{CodeOutsideLimits,
+		"The threshold lies outside the limits of the data sheet.",
+		"Check that test current and circuit are those of the data sheet, measure again, and apply your own rule for such devices."},
+	{CodeFlagWins,
+		"A condition given by a flag differs from what the file says; the flag was taken.",
+		"Look which of the two is right, and import the file again with --again if it was the file."},
+	{CodeUnitDoubtful,
+		"No bench gives such numbers in the unit that was read.",
+		"Check the unit and settle it with --units."},
+	{CodeCommentsDiffer,
+		"Two comments of the file contradict one another.",
+		"Settle the condition with its flag."},
+	{CodeCutOff,
+		"The file seems to end too early.",
+		"Compare its end with the original, and copy it again."},
+	{CodeColumnNotUsed,
+		"A column was left alone because its unit is of no quantity that is read.",
+		"Name its quantity and unit with --map and --units if it is needed."},
 }
 
 // Explain finds the entry of a code in [Codes]; false when there is none.

@@ -107,7 +107,7 @@ func physical(d *Device, leak *leakRule, opt *SpreadOptions) []Reason {
 	}
 	if res.State == fit.Measured || res.State == fit.Above {
 		if text := outsideSheet(res.Vgsth.Value, opt); text != "" {
-			out = append(out, Reason{CodeOutsideLimits, text})
+			out = append(out, Reason{fit.CodeOutsideLimits, text})
 		}
 	}
 	return out

@@ -168,7 +168,7 @@ func TestDataSheetLimits(t *testing.T) {
 		var got []string
 		for _, v := range s.Devices {
 			for _, r := range v.Reasons {
-				if r.Code == CodeOutsideLimits {
+				if r.Code == fit.CodeOutsideLimits {
 					got = append(got, v.Name+": "+r.Text)
 				}
 			}

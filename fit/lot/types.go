@@ -17,10 +17,6 @@ package lot
 
 import "gatesill/fit"
 
-// CodeOutsideLimits is the flag of a device whose threshold is outside the
-// limits of its data sheet.
-const CodeOutsideLimits = "outside-limits"
-
 // KeySpan is the gate span from the test current to the idle current, V: the
 // drive strength of a device of which nothing else tells it (two spots). It is
 // in Limits and Distance only, and only where no gain is known.
