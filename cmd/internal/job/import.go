@@ -232,6 +232,12 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	}
 	progress.Done()
 	if err != nil {
+		if f != nil { // refused for its rows: say which
+			out.Layout, out.Dialect, out.RowsRefused = f.Layout, f.Dialect, f.Refused
+			for _, r := range f.Refusals {
+				fmt.Fprintf(im.env.Err, "  %s\n", report.Clean(fmt.Sprintf("%s:%d: %s: %s", f.Name, r.Line, r.Reason, r.Text)))
+			}
+		}
 		return out, err
 	}
 	sweeps, left, err := im.ofLot(f)
