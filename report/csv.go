@@ -154,7 +154,10 @@ const (
 // be imported again: device, sweep, direction, point (from 1), then every
 // quantity that any sweep of the lot has, with the decimals that were read. A
 // reading beyond the meter's range is OL (-OL below it), a missing one is empty;
-// left_out holds the code of a point that the fit did not use.
+// left_out holds the code of a point that the fit did not use. The conditions of
+// the sweeps are not in it, because the columns are readings: they stand in
+// [WriteDevicesCSV] and [WriteJSON], and are given again when the file is
+// imported.
 func WritePointsCSV(w io.Writer, s Sheet) error {
 	b := bufio.NewWriterSize(w, 1<<16)
 	r := &csvRow{w: b}

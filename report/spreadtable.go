@@ -42,7 +42,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "", "Robust estimator: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
 	}
 	if sp := s.Spread.Split; sp != nil {
-		wrapped(p, "", "  ", "Two populations: "+Clean(sp.Text), style.Width)
+		wrapped(p, "", "  ", "Two populations. "+Clean(Sentence(sp.Text)), style.Width)
 		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
 		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
 	}

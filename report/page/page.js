@@ -17,12 +17,12 @@
   let pinned = null;
 
   const words = (row) => heads.slice(1, 8).map((h, i) => {
-    const text = row.cells[i + 1].innerText.trim();
+    const text = row.cells[i + 1].textContent.trim();
     if (!text || text === "–") return "";
-    const label = h.querySelector("span").innerText.trim();
+    const label = h.querySelector("span").textContent.trim();
     const unit = h.querySelector("small");
     const number = row.cells[i + 1].classList.contains("r");
-    return label + " " + text + (number && unit && text !== "n/a" && text !== "above" ? " " + unit.innerText.replace(/[()]/g, "") : "");
+    return label + " " + text + (number && unit && text !== "n/a" && text !== "above" ? " " + unit.textContent.replace(/[()]/g, "") : "");
   }).filter(Boolean).join(" · ");
 
   const show = (d) => {
@@ -37,7 +37,7 @@
       r.replaceChildren();
       if (row) {
         const name = document.createElement("b");
-        name.textContent = row.cells[0].innerText;
+        name.textContent = row.cells[0].textContent;
         r.append(name, words(row));
       } else {
         r.textContent = "Point at a curve, a mark or a row to name the device; the arrow keys step through them.";
@@ -114,7 +114,7 @@
       heads.forEach((h) => h.removeAttribute("aria-sort"));
       head.setAttribute("aria-sort", up ? "ascending" : "descending");
       const numeric = head.hasAttribute("data-num");
-      const value = (row) => numeric ? parseFloat(row.cells[col].dataset.v) : row.cells[col].innerText;
+      const value = (row) => numeric ? parseFloat(row.cells[col].dataset.v) : row.cells[col].textContent;
       const keyed = rows.map((row, i) => ({ row, i, v: value(row) }));
       keyed.sort((a, b) => {
         if (numeric) {
@@ -133,7 +133,7 @@
   const find = document.getElementById("find");
   const only = document.getElementById("only");
   const status = document.getElementById("shown");
-  const texts = new Map(rows.map((r) => [r, r.cells[0].innerText.toLowerCase()]));
+  const texts = new Map(rows.map((r) => [r, r.cells[0].textContent.toLowerCase()]));
   const filter = () => {
     const want = find.value.trim().toLowerCase();
     let n = 0, last = null;

@@ -90,7 +90,7 @@ func TestFlagsInSentencesWithAdvice(t *testing.T) {
 	}
 	require.Contains(t, text, "Compare its marking with the others.")
 	require.Contains(t, text, "What to do: Sweep down as well.")
-	require.Contains(t, text, "Two populations: a gap of 485 mV parts the lot 8 to 17. What to do: Ask where the parts come from.")
+	require.Contains(t, text, "Two populations. A gap of 485 mV parts the lot 8 to 17. What to do: Ask where the parts come from.")
 	require.Contains(t, text, "Lower group, 2 devices, V_GS(th) up to 2.524 V : C1, C2")
 	require.Contains(t, text, "Upper group, 1 device, V_GS(th) from 3.009 V : C3")
 	require.Contains(t, text, report.WordsOf(fit.Shorted).Next, "a state that is a flag says what to do without further help")

@@ -276,7 +276,7 @@ func (v *view) summary(k *known) {
 
 func (v *view) alerts(k *known) {
 	if sp := k.Spread.Split; sp != nil {
-		v.Alerts = append(v.Alerts, alert{Text: rich("Two populations: " + report.Sentence(sp.Text)), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
+		v.Alerts = append(v.Alerts, alert{Text: rich("Two populations. " + report.Sentence(sp.Text)), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
 	}
 	warnings := slices.Clone(k.Spread.Warnings)
 	if k.Sorting != nil {
