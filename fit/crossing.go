@@ -26,6 +26,9 @@ const (
 	// boundShare is the share of the distance between two bounds that counts as
 	// uncertainty: more than a rectangle's, for a square law lies on the bound.
 	boundShare = 0.4
+	// cornerShare is where between the curve continued and the chord a crossing
+	// before a corner is put (chosen on self-made curves).
+	cornerShare = 0.25
 )
 
 // crossing is the gate voltage at which the curve reaches a current.
@@ -140,13 +143,13 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 	if !pa.above() || !(pb.i > 0) || pb.i > farRatio*pa.i || pb.vg <= pa.vg {
 		return false
 	}
+	if a > 0 && w.pts[a-1].above() && w.flatFrom(b, w.risingTo(b)) {
+		w.beforeCorner(c, iref, e)
+		return true
+	}
 	lo, hi := w.reach(a, b, iref)
 	if hi-lo < 3 {
 		return false
-	}
-	if hi == b+1 && hi < len(w.pts) && a > lo && !(w.logSlope(hi) > flatShare*w.logSlope(b)) {
-		w.beforeCorner(c, iref, e)
-		return true
 	}
 	o := root
 	best := w.grow(root, b, lo, hi, iref, e)
@@ -169,17 +172,18 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 
 // beforeCorner reads a crossing in the last step before the curve comes to its
 // limit, as at the corner of a load line: the curve goes on as it did for an
-// unknown part of the step, so the crossing lies between that and the chord.
+// unknown part of the step, mostly beyond the crossing, so the crossing lies
+// between that and the chord, and nearer to the former.
 func (w *work) beforeCorner(c *crossing, iref, e float64) {
 	p, a, b := &w.pts[c.b-2], &w.pts[c.b-1], &w.pts[c.b]
 	y, ya := math.Sqrt(iref), math.Sqrt(a.i)
 	rise := (ya - math.Sqrt(p.i)) / (a.vg - p.vg)
 	chord := (math.Sqrt(b.i) - ya) / (b.vg - a.vg)
 	early, late := a.vg+(y-ya)/math.Max(rise, chord), a.vg+(y-ya)/chord
-	c.v, c.n = (early+late)/2, 3
+	c.v, c.n = early+cornerShare*(late-early), 3
 	c.gm = 2 * y * (rise + chord) / 2
 	single := rss(rss(e, a.ux), a.u/c.gm)
-	c.u = rss((late-early)/math.Sqrt(12), single)
+	c.u = rss(boundShare*(late-early), single)
 }
 
 // estimate is one reading of the crossing by a local polynomial.
@@ -205,10 +209,10 @@ func (w *work) reach(a, b int, iref float64) (lo, hi int) {
 		}
 		lo--
 	}
-	flat := flatShare * w.logSlope(b)
+	slope := w.risingTo(b)
 	for hi < len(w.pts) && hi-b < windowSide {
 		p := &w.pts[hi]
-		if !p.above() || p.i > windowRatio*iref && hi-b >= 2 || !(w.logSlope(hi) > flat) {
+		if !p.above() || p.i > windowRatio*iref && hi-b >= 2 || w.flatFrom(hi-1, slope) {
 			break
 		}
 		hi++
@@ -340,7 +344,7 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 	hi := lo
 	if a.above() {
 		hi = line(logarithm, a, b)
-		if strong := 2*(b.vg-a.vg)/math.Log(b.i/a.i) > knee; strong && b.i < farRatio*a.i && b.vg-a.vg <= 0.1 {
+		if strong := 2*(b.vg-a.vg)/math.Log(b.i/a.i) > knee; strong && b.i < farRatio*a.i && b.vg-a.vg < 0.101 {
 			hi = lo // a square law between the two points
 		}
 	}

@@ -36,12 +36,12 @@ func (w *work) scatterNear(b int) float64 {
 	known := 0.0
 	b = min(b, len(w.pts)-1)
 	near := w.pts[b].i
-	flat := flatShare * w.logSlope(b)
+	flat := flatShare * w.risingTo(b)
 	for j := max(2, b-scatterReach); j < min(len(w.pts)-2, b+scatterReach); j++ {
 		if i := w.pts[j].i; i > scatterRatio*near || i < near/scatterRatio {
 			continue
 		}
-		if !(w.logSlope(j) > flat) || !(w.logSlope(j+1) > flat) {
+		if !(w.logSlope(j-2, j+2) > flat) {
 			continue
 		}
 		if v, k, ok := w.pseudoResidual(j); ok {
@@ -70,16 +70,33 @@ func (w *work) scatterNear(b int) float64 {
 	return math.Sqrt(math.Max(0, mean-known))
 }
 
-// logSlope is d ln I/dV between points j-1 and j, 1/V; NaN where there is none.
-func (w *work) logSlope(j int) float64 {
-	if j < 1 {
+// logSlope is d ln I/dV from point j to point k, 1/V; NaN where there is none.
+func (w *work) logSlope(j, k int) float64 {
+	if j < 0 || k >= len(w.pts) || j >= k {
 		return math.NaN()
 	}
-	a, b := &w.pts[j-1], &w.pts[j]
+	a, b := &w.pts[j], &w.pts[k]
 	if !(a.i > 0) || !(b.i > 0) {
 		return math.NaN()
 	}
 	return (b.ln - a.ln) / (b.vg - a.vg)
+}
+
+// risingTo is the logarithmic slope up to point b, over as many of the three
+// steps before it as stand clear of the last digits.
+func (w *work) risingTo(b int) float64 {
+	a := b - 1
+	for a > 0 && b-a < 3 && w.pts[a-1].above() {
+		a--
+	}
+	return w.logSlope(a, b)
+}
+
+// flatFrom reports whether the curve from point j on, over three steps, hardly
+// rises compared with the logarithmic slope given: single steps may be noise.
+func (w *work) flatFrom(j int, slope float64) bool {
+	k := min(j+3, len(w.pts)-1)
+	return k > j && !(w.logSlope(j, k) > flatShare*slope)
 }
 
 // trimmedMean is the expected mean of the lowest kept of n squares of standard

@@ -83,7 +83,7 @@ func (d simDevice) at(b simBench, vg float64) float64 {
 		return hi + d.leak
 	}
 	hi = math.Min(hi, top/(r+d.rs))
-	for range 100 {
+	for range 60 {
 		m := (lo + hi) / 2
 		if f(m) > m {
 			lo = m
