@@ -50,6 +50,11 @@ const (
 	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
 	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
 
+	// States of a device that stand as a warning in what programs read.
+	CodeExcluded    = "excluded"
+	CodeDeclined    = "declined"
+	CodeNotMeasured = "not-measured"
+
 	// Raised when files are read.
 	CodeFlagWins       = "flag-wins"
 	CodeUnitDoubtful   = "unit-doubtful"
@@ -181,6 +186,15 @@ var Codes = []CodeInfo{
 	{CodeOutsideLimits,
 		"The threshold lies outside the limits of the data sheet.",
 		"Check that test current and circuit are those of the data sheet, measure again, and apply your own rule for such devices."},
+	{CodeExcluded,
+		"The device was left out of every statistic by hand.",
+		"See why with gatesill device show; gatesill device include lets it count again."},
+	{CodeDeclined,
+		"There are readings of the device, but no number that may be believed.",
+		"Read the reason beside it and measure again."},
+	{CodeNotMeasured,
+		"No sweep of the device is stored.",
+		"Measure it, or import its file."},
 	{CodeFlagWins,
 		"A condition given by a flag differs from what the file says; the flag was taken.",
 		"Look which of the two is right, and import the file again with --again if it was the file."},

@@ -345,11 +345,6 @@ func lotRowDocOf(r LotRow) lotRowDoc {
 	return lotRowDoc{lotDocOf(r.Lot), r.Lot.DevicesCount, r.Lot.SweepsCount, partDocOf(r.Part)}
 }
 
-// LotJSON writes one lot with its part.
-func LotJSON(w io.Writer, r LotRow) error {
-	return writeObject(w, member{"schema", Schema}, member{"lot", r.Lot.Name}, member{"about_lot", lotRowDocOf(r)})
-}
-
 type changeDoc struct {
 	At      string   `json:"at"`
 	Who     optional `json:"who"`

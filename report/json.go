@@ -151,22 +151,15 @@ type deviceDoc struct {
 	Warnings []fit.Warning `json:"warnings"`
 }
 
-// Codes that say why a device has no value where the fit gave none.
-const (
-	CodeExcluded    = "excluded"
-	CodeDeclined    = "declined"
-	CodeNotMeasured = "not-measured"
-)
-
 // stateCodes names the warning code that goes with a state.
 var stateCodes = map[fit.State]string{
 	fit.Above:         fit.CodeAboveRange,
 	fit.Open:          fit.CodeOpen,
 	fit.Shorted:       fit.CodeShorted,
 	fit.WrongWayRound: fit.CodeWrongWayRound,
-	fit.Declined:      CodeDeclined,
-	fit.Excluded:      CodeExcluded,
-	"":                CodeNotMeasured,
+	fit.Declined:      fit.CodeDeclined,
+	fit.Excluded:      fit.CodeExcluded,
+	"":                fit.CodeNotMeasured,
 }
 
 // warningsOf gives the warnings of a device; a state other than measured is

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -41,12 +42,14 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	if s.Spread.Estimator != "" {
 		wrapped(p, "", "", "Robust estimator: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
 	}
+	warnings := s.Spread.Warnings
 	if sp := s.Spread.Split; sp != nil {
-		wrapped(p, "", "  ", "Two populations. "+Clean(Sentence(sp.Text)), style.Width)
+		warnings = slices.DeleteFunc(slices.Clone(warnings), func(w fit.Warning) bool { return w.Text == sp.Text })
+		wrapped(p, "", "  ", Clean(Sentence(sp.Text)), style.Width)
 		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
 		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
 	}
-	lotWarnings(p, s, s.Spread.Warnings, style)
+	lotWarnings(p, s, warnings, style)
 	flags(p, s, style)
 	return p.err
 }

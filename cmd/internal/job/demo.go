@@ -168,7 +168,11 @@ func (d *demo) files(context.Context) error {
 		for _, vg := range d.gates(0, 0.021) {
 			fmt.Fprintf(&b, "%s,%s,%s\n", d.meter(vg, 6000, 6), d.meter(1e3*t.drain(vg), 6000, 60, 600), d.meter(demoRL*t.drain(vg), 6000, 6, 60))
 		}
-		for _, vg := range d.gates(2.6, 3.95) {
+		top := 3.95
+		if t.open {
+			top = 4.9 // turned on further, as nothing came
+		}
+		for _, vg := range d.gates(2.6, top) {
 			id := t.drain(vg)
 			fmt.Fprintf(&b, "%s,%s,%s\n", d.meter(vg, 6000, 6), d.meter(id*1e3, 6000, 60, 600, 6000), d.meter(id*demoRL, 6000, 6, 60))
 		}

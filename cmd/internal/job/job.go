@@ -14,6 +14,8 @@ import (
 	"time"
 
 	"gatesill/acquire/table"
+	"gatesill/fit"
+	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
 )
@@ -75,6 +77,13 @@ func failed(hint, format string, args ...any) error {
 // warn tells of something that does not stop the job.
 func (e *Env) warn(format string, args ...any) {
 	fmt.Fprintf(e.Err, "gatesill: warning: "+format+"\n", args...)
+}
+
+// tellWarnings tells the warnings of a result whose JSON has no place for them.
+func (e *Env) tellWarnings(ws []fit.Warning) {
+	for _, w := range ws {
+		e.warn("%s [%s]", report.Clean(w.Text), w.Code)
+	}
 }
 
 // talk says what is being done, unless told to be quiet.

@@ -35,6 +35,7 @@ func Spread(ctx context.Context, env *Env, name string, o SheetOptions, fail boo
 		return err
 	}
 	if env.JSON {
+		env.tellWarnings(s.Spread.Warnings)
 		err = report.SpreadJSON(env.Out, s)
 	} else {
 		err = report.SpreadTable(env.Out, s, env.style())
@@ -83,6 +84,7 @@ func Sort(ctx context.Context, env *Env, name string, o SheetOptions, rq SortReq
 		return Usage("gatesill help sort", "%w", err)
 	}
 	if env.JSON {
+		env.tellWarnings(s.Sorting.Warnings)
 		err = report.SortJSON(env.Out, s)
 	} else {
 		err = report.SortTable(env.Out, s, env.style())
@@ -185,6 +187,9 @@ func Export(ctx context.Context, env *Env, name, path string, points bool, o She
 	}
 	if err := env.WriteFile(path, func(w io.Writer) error { return write(w, s) }); err != nil {
 		return err
+	}
+	if names := report.FormulaLike(s); len(names) > 0 && !strings.HasSuffix(strings.ToLower(path), ".json") {
+		env.warn("%s that a spreadsheet may take for a formula, kept as it is: %s", count(len(names), "text"), report.Clean(strings.Join(names[:min(3, len(names))], ", ")))
 	}
 	if path != "-" {
 		env.talk("%s of lot %s: %s", count(len(s.Devices), "device"), report.Clean(name), report.Clean(path))
