@@ -71,13 +71,19 @@ func open(ctx context.Context, path string, o Options, steps []migration) (*DB, 
 		db.wait = 5 * time.Second
 	}
 	if err := db.open(ctx, o.Create && !o.ReadOnly, steps); err != nil {
-		closed := db.Close()
-		if db.created {
-			closed = errors.Join(closed, db.remove())
-		}
-		return nil, errors.Join(wrap(full, err), closed)
+		return nil, errors.Join(wrap(full, err), db.Close(), db.removeUnmade())
 	}
 	return db, nil
+}
+
+// removeUnmade removes the file that Open made if it is still empty: another
+// process may have made it a store in the meantime.
+func (db *DB) removeUnmade() error {
+	info, err := os.Stat(db.path)
+	if !db.created || err != nil || info.Size() > 0 {
+		return nil
+	}
+	return db.remove()
 }
 
 func (db *DB) open(ctx context.Context, create bool, steps []migration) error {
@@ -103,10 +109,26 @@ func (db *DB) open(ctx context.Context, create bool, steps []migration) error {
 	if db.info, err = os.Stat(db.path); err != nil {
 		return err
 	}
-	if err := db.connect(ctx); err != nil {
+	if err := db.patiently(ctx, db.connect); err != nil {
 		return err
 	}
 	return db.upToDate(ctx, steps)
+}
+
+// patiently repeats f while another process is in the way. SQLite itself does
+// not wait when it turns a new file to its write-ahead log.
+func (db *DB) patiently(ctx context.Context, f func(context.Context) error) error {
+	for end := time.Now().Add(db.wait); ; {
+		err := f(ctx)
+		if !errors.Is(named(err), ErrBusy) || time.Now().After(end) {
+			return err
+		}
+		select {
+		case <-time.After(2 * time.Millisecond):
+		case <-ctx.Done():
+			return ctx.Err()
+		}
+	}
 }
 
 // header is what the first 100 bytes of a file say (SQLite, Database File
@@ -310,6 +332,9 @@ func (db *DB) hasLog() bool {
 }
 
 func (db *DB) connectWriter(ctx context.Context) error {
+	if db.writes != nil { // from the attempt before
+		return nil
+	}
 	w, err := sql.Open("sqlite", dsn(db.path, db.options(url.Values{
 		"_txlock": {"immediate"},
 		"_pragma": {
