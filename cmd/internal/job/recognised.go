@@ -113,7 +113,11 @@ func circuits(sweeps []table.Sweep) string {
 	seen := map[string]bool{}
 	for i := range sweeps {
 		c := &sweeps[i].Condition
-		text := strings.Join(append([]string{report.CircuitWords(c.Circuit)}, report.ConditionWords(*c)...), ", ")
+		name := report.CircuitWords(c.Circuit)
+		if name == "" {
+			name = report.NotGiven
+		}
+		text := strings.Join(append([]string{name}, report.ConditionWords(*c)...), ", ")
 		seen[text] = true
 	}
 	all := slices.Sorted(maps.Keys(seen))
