@@ -3,16 +3,13 @@ package store
 import (
 	"context"
 	"database/sql"
-	"encoding/binary"
 	"errors"
 	"fmt"
-	"io"
 	"io/fs"
 	"net/url"
 	"os"
 	"path/filepath"
 	"strconv"
-	"sync"
 	"time"
 
 	sqlite3 "modernc.org/sqlite/lib"
@@ -76,16 +73,6 @@ func open(ctx context.Context, path string, o Options, steps []migration) (*DB, 
 	return db, nil
 }
 
-// removeUnmade removes the file that Open made if it is still empty: another
-// process may have made it a store in the meantime.
-func (db *DB) removeUnmade() error {
-	info, err := os.Stat(db.path)
-	if !db.created || err != nil || info.Size() > 0 {
-		return nil
-	}
-	return db.remove()
-}
-
 func (db *DB) open(ctx context.Context, create bool, steps []migration) error {
 	head, err := db.look()
 	switch {
@@ -129,159 +116,6 @@ func (db *DB) patiently(ctx context.Context, f func(context.Context) error) erro
 			return ctx.Err()
 		}
 	}
-}
-
-// header is what the first 100 bytes of a file say (SQLite, Database File
-// Format, 1.3).
-type header struct {
-	empty       bool
-	magic       bool
-	application uint32
-	version     uint32
-}
-
-// check refuses a file that is not ours, is newer or has a damaged header.
-func (h header) check(newest int) error {
-	switch {
-	case h.empty:
-		return fmt.Errorf("%w: the file is empty", ErrNotOurs)
-	case !h.magic && h.application == applicationID:
-		return fmt.Errorf("%w: the beginning of the file is overwritten", ErrCorrupt)
-	case !h.magic:
-		return fmt.Errorf("%w: it is no SQLite file", ErrNotOurs)
-	case h.application != applicationID:
-		return fmt.Errorf("%w: it is an SQLite file of another program", ErrNotOurs)
-	case h.version > uint32(newest):
-		return fmt.Errorf("%w: it has form %d, this program knows %d", ErrNewer, h.version, newest)
-	}
-	return nil
-}
-
-// opened holds the files that this process has open as stores: on some systems
-// closing any descriptor of a file drops the locks that the process holds on
-// it, so the header of such a file must not be read again.
-var opened struct {
-	sync.Mutex
-	by map[*DB]os.FileInfo
-}
-
-// look reads the header, and enters the file in opened.
-func (db *DB) look() (header, error) {
-	opened.Lock()
-	defer opened.Unlock()
-	info, err := os.Stat(db.path)
-	if err != nil {
-		return header{}, err
-	}
-	if info.IsDir() {
-		return header{}, fmt.Errorf("%w: it is a folder", ErrNotOurs)
-	}
-	if !info.Mode().IsRegular() {
-		return header{}, fmt.Errorf("%w: it is no ordinary file", ErrNotOurs)
-	}
-	known := false
-	for _, other := range opened.by {
-		known = known || os.SameFile(other, info)
-	}
-	h := header{magic: true, application: applicationID}
-	if !known {
-		if h, err = readHeader(db.path); err != nil {
-			return header{}, err
-		}
-	}
-	db.enter(info)
-	return h, nil
-}
-
-// enter notes that this process has the file open; opened must be locked.
-func (db *DB) enter(info os.FileInfo) {
-	if opened.by == nil {
-		opened.by = map[*DB]os.FileInfo{}
-	}
-	opened.by[db] = info
-}
-
-func readHeader(path string) (header, error) {
-	f, err := os.Open(path)
-	if err != nil {
-		return header{}, err
-	}
-	defer f.Close()
-	b := make([]byte, 100)
-	n, err := io.ReadFull(f, b)
-	if err != nil && !errors.Is(err, io.EOF) && !errors.Is(err, io.ErrUnexpectedEOF) {
-		return header{}, err
-	}
-	return header{
-		empty:       n == 0,
-		magic:       n == len(b) && string(b[:16]) == "SQLite format 3\x00",
-		version:     binary.BigEndian.Uint32(b[60:]),
-		application: binary.BigEndian.Uint32(b[68:]),
-	}, nil
-}
-
-// create makes the file and its folder. The store is made with a rollback
-// journal, so that a file of ours has our mark from its first page on, and so
-// that a half-made one is an empty one.
-func (db *DB) create(ctx context.Context, steps []migration) error {
-	if err := db.makeFolder(filepath.Dir(db.path)); err != nil {
-		return readOnlyIfDenied(err)
-	}
-	if err := db.makeFile(); err != nil {
-		return readOnlyIfDenied(err)
-	}
-	if _, err := db.look(); err != nil {
-		return err
-	}
-	maker, err := sql.Open("sqlite", dsn(db.path, db.options(url.Values{"_pragma": {
-		pageSizePragma, "synchronous(FULL)"}})))
-	if err != nil {
-		return err
-	}
-	maker.SetMaxOpenConns(1)
-	err = migrate(ctx, maker, steps)
-	return errors.Join(err, maker.Close())
-}
-
-// makeFile makes an empty file, unless one is there: an empty one, or that of a
-// process that makes the store just now.
-func (db *DB) makeFile() error {
-	opened.Lock()
-	defer opened.Unlock()
-	f, err := os.OpenFile(db.path, os.O_RDWR|os.O_CREATE|os.O_EXCL, 0o644)
-	if errors.Is(err, fs.ErrExist) {
-		return nil
-	}
-	if err != nil {
-		return err
-	}
-	db.created = true
-	return f.Close()
-}
-
-// makeFolder makes the folder with its parents and notes which ones it made.
-func (db *DB) makeFolder(folder string) error {
-	if _, err := os.Stat(folder); err == nil || !errors.Is(err, fs.ErrNotExist) {
-		return err
-	}
-	if parent := filepath.Dir(folder); parent != folder {
-		if err := db.makeFolder(parent); err != nil {
-			return err
-		}
-	}
-	if err := os.Mkdir(folder, 0o755); err != nil && !errors.Is(err, fs.ErrExist) {
-		return err
-	}
-	db.made = append(db.made, folder)
-	return nil
-}
-
-// readOnlyIfDenied says of a folder that may not be written what it means here.
-func readOnlyIfDenied(err error) error {
-	if errors.Is(err, fs.ErrPermission) {
-		return fmt.Errorf("%w: %w", ErrReadOnly, err)
-	}
-	return err
 }
 
 // options adds what every connection has to v.
