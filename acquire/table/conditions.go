@@ -74,7 +74,7 @@ func (r *reader) settleConditions() {
 		if s.Direction == record.Spot {
 			s.Condition.SpotCurrent = spotOf(s)
 		}
-		s.Date, s.MeasuredAt = r.talkText[RoleDate], r.talkText[RoleDate]
+		s.Date = r.talkText[RoleDate]
 		s.Operator, s.Fixture = r.talkText[RoleOperator], r.talkText[RoleFixture]
 		s.DateCode, s.Marking, s.Tube = r.talkText[RoleDateCode], r.talkText[RoleMarking], r.talkText[RoleTube]
 	}
@@ -148,7 +148,6 @@ func (r *reader) readAttributes() {
 					}
 				}
 			}
-			list[0].MeasuredAt = list[0].Date
 			if rl != nil && rl.index < len(s.cells) {
 				r.takeRL(&list[0], rl, string(trim(s.cells[rl.index])))
 			}

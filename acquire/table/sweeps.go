@@ -334,6 +334,7 @@ func (r *reader) finish() error {
 		f.Points += s.Len()
 	}
 	r.readAttributes()
+	r.settleDates()
 	r.sameRows()
 	r.doubtUnits()
 	r.describe()
