@@ -62,8 +62,8 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.BoolVar(&env.JSON, "json", false, "results as one JSON object")
 	p.StringVar(&color, "color", "auto", "colour: auto, always or never")
 	p.BoolVarP(&env.Quiet, "quiet", "q", false, "no talk, only results, warnings and errors")
-	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say more")
-	p.BoolVar(&env.Yes, "yes", false, "answer yes where it would ask")
+	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
+	p.BoolVar(&env.Yes, "yes", false, "go on without asking whether to")
 	root.AddCommand(
 		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
 		reportCmd(env), exportCmd(env), backupCmd(env), versionCmd(env),

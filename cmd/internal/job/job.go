@@ -93,6 +93,13 @@ func (e *Env) talk(format string, args ...any) {
 	}
 }
 
+// detail says more, when that was asked for.
+func (e *Env) detail(format string, args ...any) {
+	if e.Verbose {
+		fmt.Fprintf(e.Err, format+"\n", args...)
+	}
+}
+
 // path is the store's path, the default one when none was given.
 func (e *Env) path() (string, error) {
 	if e.Store != "" {
@@ -112,6 +119,7 @@ func (e *Env) open(ctx context.Context, create, readOnly bool) (*store.DB, error
 	if err != nil {
 		return nil, storeFailure(err)
 	}
+	e.detail("store: %s, program %s", db.Path(), e.Version)
 	return db, nil
 }
 

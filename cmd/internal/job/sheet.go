@@ -11,6 +11,7 @@ import (
 	"runtime"
 	"slices"
 	"sync"
+	"time"
 
 	"gatesill/fit"
 	"gatesill/fit/lot"
@@ -47,25 +48,8 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	}
 	defer db.Close()
 	var sweeps []record.Sweep
-	err = db.View(ctx, func(tx *store.Tx) error {
-		var err error
-		if s.Lot, s.Part, err = lotOf(tx, name); err != nil {
-			return err
-		}
-		if s.Sources, err = tx.Sources(s.Lot.ID); err != nil {
-			return err
-		}
-		if s.Sessions, err = tx.Sessions(s.Lot.ID); err != nil {
-			return err
-		}
-		devices, err := tx.Devices(s.Lot.ID)
-		if err != nil {
-			return err
-		}
-		for _, d := range devices {
-			s.Devices = append(s.Devices, report.Device{Device: d})
-		}
-		sweeps, err = tx.Sweeps(s.Lot.ID, true)
+	err = db.View(ctx, func(tx *store.Tx) (err error) {
+		s, sweeps, err = load(tx, name)
 		return err
 	})
 	if err != nil {
@@ -77,10 +61,17 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	s.Version, s.Codes = e.Version, fit.Codes
 	placeSweeps(&s, sweeps)
 	currents(&s, o.At)
+	start := time.Now()
 	if err := fitSheet(ctx, &s, o.Method); err != nil {
 		return s, err
 	}
-	judge(&s, o.Limit)
+	e.detail("%s of %s fitted in %v", count(len(sweeps), "sweep"), count(len(s.Devices), "device"), time.Since(start).Round(time.Millisecond))
+	s.SortedBy = sortedBy(&s)
+	known, err := history(ctx, db, &s, o.Method)
+	if err != nil {
+		return s, storeFailure(err)
+	}
+	judge(&s, o.Limit, known)
 	s.Hash = dataHash(&s)
 	if !o.ReadOnly {
 		err := db.Update(ctx, func(tx *store.Tx) error { return tx.PutEstimates(estimates(&s, o.Method)) })
@@ -91,6 +82,28 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 		}
 	}
 	return s, nil
+}
+
+// load reads one lot with its sweeps.
+func load(tx *store.Tx, name string) (s report.Sheet, sweeps []record.Sweep, err error) {
+	if s.Lot, s.Part, err = lotOf(tx, name); err != nil {
+		return s, nil, err
+	}
+	if s.Sources, err = tx.Sources(s.Lot.ID); err != nil {
+		return s, nil, err
+	}
+	if s.Sessions, err = tx.Sessions(s.Lot.ID); err != nil {
+		return s, nil, err
+	}
+	devices, err := tx.Devices(s.Lot.ID)
+	for _, d := range devices {
+		s.Devices = append(s.Devices, report.Device{Device: d})
+	}
+	if err != nil {
+		return s, nil, err
+	}
+	sweeps, err = tx.Sweeps(s.Lot.ID, true)
+	return s, sweeps, err
 }
 
 // keepNamed leaves only the named devices in the sheet.
@@ -357,10 +370,10 @@ func sortedBy(s *report.Sheet) fit.Key {
 }
 
 // judge fills spread and flags of the sheet.
-func judge(s *report.Sheet, limit float64) {
-	s.SortedBy = sortedBy(s)
+func judge(s *report.Sheet, limit float64, known *lot.Known) {
 	s.Spread = lot.SpreadOf(lotDevices(s), lot.SpreadOptions{
-		SortedBy: s.SortedBy, K: limit, VgsthMin: s.Part.VgsthMin.Float(), VgsthMax: s.Part.VgsthMax.Float(),
+		SortedBy: s.SortedBy, K: limit, Known: known, TestCurrent: s.TestCurrent, PChannel: s.Part.Channel == record.PChannel,
+		VgsthMin: s.Part.VgsthMin.Float(), VgsthMax: s.Part.VgsthMax.Float(),
 	})
 }
 
