@@ -18,7 +18,7 @@ const (
 	// lie apart, and leanShare the share of the difference of the leaning parabolas
 	// that counts as uncertainty (chosen on self-made curves).
 	slopesAgree = 1.0
-	leanShare   = 0.5
+	leanShare   = 1.0
 )
 
 // slopePoints is the curve as slopes are taken of it: points nearer together

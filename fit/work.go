@@ -142,7 +142,7 @@ func greatest(x []float64) float64 {
 // the load circuit it is at least the greatest V_L.
 func (w *work) supply() {
 	w.vdd, w.least = math.Abs(w.s.Vdd), math.NaN()
-	if w.vdd == 0 {
+	if !positive(w.vdd) {
 		w.vdd = math.NaN()
 	}
 	if v := math.Abs(greatest(w.c.Vdd)); v > 0 {
