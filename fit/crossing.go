@@ -110,8 +110,9 @@ func (w *work) gateAt(iref float64) crossing {
 		c.count = max(1, c.count)
 		last = 0
 	}
-	if w.pts[c.b].floor() > iref {
-		w.extend(&c, iref)
+	if w.pts[max(c.b, last)].floor() > iref {
+		c.b = max(c.b, last) // earlier ones may be flicker of the last digit
+		w.belowCounts(&c, iref)
 		return c
 	}
 	e := w.scatterNear(c.b)
@@ -140,7 +141,7 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 		return false
 	}
 	pa, pb := &w.pts[a], &w.pts[b]
-	if !pa.above() || !(pb.i > 0) || pb.i > farRatio*pa.i || pb.vg <= pa.vg {
+	if !pa.above() || !(pb.i > 0) || pb.i > farRatio*pa.i*tie || pb.vg <= pa.vg {
 		return false
 	}
 	if a > 0 && w.pts[a-1].above() && w.flatFrom(b, w.risingTo(b)) {
@@ -189,7 +190,7 @@ func (w *work) beforeCorner(c *crossing, iref, e float64) {
 // estimate is one reading of the crossing by a local polynomial.
 type estimate struct {
 	v, u, gm float64
-	bend     float64 // V, how far the narrowest polynomial lies from the chord
+	bend     float64 // V, how far the narrowest polynomial lies from the chord in its middle
 	n        int
 	s        float64 // slope of the ordinate there
 	lo, hi   int     // window
@@ -203,7 +204,7 @@ func (w *work) reach(a, b int, iref float64) (lo, hi int) {
 	lo, hi = a, b+1
 	for lo > 0 && b-lo < windowSide {
 		p, q := &w.pts[lo-1], &w.pts[lo]
-		if !p.above() || p.vg >= q.vg || p.i*windowRatio < iref && a-lo >= 1 ||
+		if !p.above() || p.vg >= q.vg || p.i*windowRatio*tie < iref && a-lo >= 1 ||
 			q.ln-p.ln > steepest*(q.vg-p.vg)+6*p.u/p.i {
 			break
 		}
@@ -212,7 +213,7 @@ func (w *work) reach(a, b int, iref float64) (lo, hi int) {
 	slope := w.risingTo(b)
 	for hi < len(w.pts) && hi-b < windowSide {
 		p := &w.pts[hi]
-		if !p.above() || p.i > windowRatio*iref && hi-b >= 2 || w.flatFrom(hi-1, slope) {
+		if !p.above() || p.i > windowRatio*iref*tie && hi-b >= 2 || w.flatFrom(hi-1, slope) {
 			break
 		}
 		hi++
@@ -227,7 +228,7 @@ func (w *work) grow(o ordinate, b, lo, hi int, iref, e float64) (best estimate) 
 	pa, pb := &w.pts[a], &w.pts[b]
 	y := o.of(iref)
 	slope := (o.at(pb) - o.at(pa)) / (pb.vg - pa.vg)
-	chord := pa.vg + (y-o.at(pa))/slope
+	middle, chord := (pa.vg+pb.vg)/2, (o.at(pa)+o.at(pb))/2
 	var win window
 	least, most := math.Inf(-1), math.Inf(1)
 	for side := 2; ; side++ {
@@ -240,7 +241,8 @@ func (w *work) grow(o ordinate, b, lo, hi int, iref, e float64) (best estimate) 
 			return best
 		}
 		if side == 2 {
-			got.bend = math.Abs(got.v - chord)
+			v, s := win.p.at(middle)
+			got.bend = math.Abs((v - chord) / s)
 		} else {
 			got.bend = best.bend
 		}
@@ -344,7 +346,7 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 	hi := lo
 	if a.above() {
 		hi = line(logarithm, a, b)
-		if strong := 2*(b.vg-a.vg)/math.Log(b.i/a.i) > knee; strong && b.i < farRatio*a.i && b.vg-a.vg < 0.101 {
+		if strong := 2*(b.vg-a.vg)/math.Log(b.i/a.i) > knee; strong && b.i < farRatio*a.i*tie && b.vg-a.vg < 0.101 {
 			hi = lo // a square law between the two points
 		}
 	}
@@ -390,43 +392,41 @@ func (w *work) atFirst(c *crossing, iref, e float64) {
 	c.u = rss(c.u, p.u/c.gm)
 }
 
-// extend reads a current below three counts off the curve above it, by a
-// parabola in √I, when that is not too far; else c stays without a value.
-func (w *work) extend(c *crossing, iref float64) {
+// belowCounts reads a current of less than three counts: single readings there
+// are mostly last digit, but their mean is not, so a parabola is laid through
+// the current itself over three points below and four above the crossing. Less
+// than one count is refused: c stays without a value.
+func (w *work) belowCounts(c *crossing, iref float64) {
 	c.limited = true
-	f := c.b
-	for f < len(w.pts) && !w.pts[f].above() {
-		f++
-	}
-	var x, y, s [6]float64
-	m := 0
-	for ; m < len(x) && f+m < len(w.pts); m++ {
-		p := &w.pts[f+m]
-		x[m], y[m] = p.vg, math.Sqrt(p.i)
-		s[m] = math.Max(p.u, p.q/math.Sqrt(12)) * root.slope(p.i)
-	}
-	// One count is the least that anything can be said of.
-	if m < 4 || iref < w.pts[f].q {
+	q := w.pts[c.b].q
+	lo, hi := max(0, c.b-3), min(len(w.pts), c.b+4)
+	m := hi - lo
+	if iref < q*(1-1e-9) || m < 4 || c.b == 0 {
 		return
 	}
-	var p poly
-	if !p.fit(x[:m], y[:m], nil, 2) {
-		return
-	}
-	target := math.Sqrt(iref)
-	span := x[m-1] - x[0]
-	v, slope := p.solve(target, x[0], x[0]-span, x[m-1])
-	if math.IsNaN(v) || v <= x[0]-span*0.99 {
-		return
-	}
-	c.v, c.n = v, m
-	c.gm = 2 * target * slope
-	e := w.scatterNear(f)
+	var x, y, s [7]float64
 	for j := range m {
-		s[j] = rss(s[j], slope*e)
+		p := &w.pts[lo+j]
+		// Half a count stands for rounding and flicker of the last digit.
+		x[j], y[j], s[j] = p.vg, p.i, math.Max(p.u, q/2)
 	}
-	// The part beyond the points may bend: a quarter of it is doubtful.
-	c.u = rss(p.scatter(v, s[:m], false)/slope, math.Max(0, x[0]-v)/4)
+	if !w.poly.fit(x[:m], y[:m], nil, 2) {
+		return
+	}
+	a, b := x[c.b-lo-1], x[c.b-lo]
+	v, slope := w.poly.solve(iref, (a+b)/2, x[0], x[m-1])
+	if math.IsNaN(v) || math.Abs(v-(a+b)/2) > 2*(b-a) {
+		v = (a + b) / 2
+		slope = (w.pts[c.b].i - w.pts[c.b-1].i) / (b - a)
+	}
+	if !(slope > 0) {
+		return
+	}
+	c.v, c.gm, c.n = v, slope, m
+	// An exponential foot is no parabola: a quarter of the step is doubtful, and
+	// a count is worth at least what it is on an exponential of n = 1.4.
+	c.u = rss(w.poly.scatter(v, s[:m], false)/slope, (b-a)/4)
+	c.u = rss(c.u, q/math.Sqrt(12)*1.4*thermalVoltage/iref)
 }
 
 // judgeGrid decides whether the points near the crossing lie too far apart for
@@ -440,7 +440,7 @@ func (w *work) judgeGrid(c *crossing, iref float64) {
 	if near := math.Min(math.Abs(a.i-iref), math.Abs(b.i-iref)); near <= 0.01*iref {
 		return // a point stands there itself
 	}
-	if !a.above() || b.i > farRatio*a.i {
+	if !a.above() || b.i > farRatio*a.i*tie {
 		c.coarse = step > fineStep || c.u > 1e-3
 		return
 	}

@@ -27,6 +27,9 @@ const (
 // the finer reading serves at low current; the neighbours settle what
 // disagrees.
 func (w *work) settleCurrents() {
+	if len(w.pts) == 0 {
+		return
+	}
 	if w.byDrain && !w.vddRead {
 		w.calibrateSupply()
 	}
@@ -40,6 +43,13 @@ func (w *work) settleCurrents() {
 	if disputed > 0 {
 		w.settleDisputes()
 	}
+	w.pts = slices.DeleteFunc(w.pts, func(p point) bool {
+		bad := !finiteNumber(p.i) || !finiteNumber(p.u)
+		if bad {
+			w.leave(p.k, CodeOutOfLine, "the current cannot be computed from the readings")
+		}
+		return bad
+	})
 }
 
 // calibrateSupply puts the nominal supply right by the drain meter itself when

@@ -204,7 +204,7 @@ func (w *work) rootLine(use []int) (line, bool) {
 	for _, share := range [...]float64{windowHigh, 2 * windowHigh, 1} {
 		from, to := len(w.pts), 0
 		for _, j := range use {
-			if i := w.pts[j].i; i >= windowLow*top && i <= share*top*(1+1e-9) {
+			if i := w.pts[j].i; i*tie >= windowLow*top && i <= share*top*tie {
 				from, to = min(from, j), max(to, j+1)
 			}
 		}

@@ -16,8 +16,25 @@ func One(c Curve, s Setup) Result {
 	r := NewResult()
 	w.settleCurrents()
 	w.evaluate(&r)
+	dropInfinite(&r)
 	r.LeftOut, r.Warnings = w.sortedLeft(), w.warns
 	return r
+}
+
+// dropInfinite takes out what overflowed on absurd readings: no number is
+// better than none that can be written.
+func dropInfinite(r *Result) {
+	for _, k := range Keys {
+		q := r.At(k)
+		if math.IsInf(q.Value, 0) {
+			*q = None()
+		}
+		for _, u := range [...]*float64{&q.U, &q.UBetween, &q.UAbsolute} {
+			if math.IsInf(*u, 0) {
+				*u = math.NaN()
+			}
+		}
+	}
 }
 
 func (w *work) evaluate(r *Result) {
@@ -95,7 +112,7 @@ func (w *work) contradictory() bool {
 	if n >= 3 && 5*n >= all {
 		w.warn(CodeOscillation, count(n, "point contradicts", "points contradict")+" a rising curve, as with a part that oscillates.")
 	}
-	return n >= 3 && 5*n > 2*all
+	return w.hopeless || n >= 3 && 5*n > 2*all
 }
 
 // tellAccuracy says which statement is missing for an absolute uncertainty.
@@ -186,7 +203,7 @@ func (w *work) tellCrossing(c crossing, i float64) (why string) {
 		if math.IsNaN(c.v) {
 			why += ": no value."
 		} else {
-			why += "; read off by continuing the curve above it."
+			why += "; read off by averaging several points."
 		}
 		w.warn(CodeBenchLimited, why)
 		return why

@@ -76,11 +76,15 @@ const floorCounts = 3
 func (p *point) floor() float64 { return floorCounts * p.q }
 
 // above reports whether the current of p stands clear of the last digits.
-func (p *point) above() bool { return p.i > 0 && p.i >= p.floor()*(1-1e-9) }
+func (p *point) above() bool { return p.i > 0 && p.i*tie >= p.floor() }
 
 // steepest is the steepest slope of ln I that a transistor can have, 1/V: kT/q
 // at -40 °C. What is steeper is the corner of a simulated square law or noise.
 const steepest = 50
+
+// tie lets a comparison of two readings that are the same decimal number come
+// out the same whatever their last binary digit.
+const tie = 1 + 1e-9
 
 // rss is the root of the sum of two squares.
 func rss(a, b float64) float64 { return math.Sqrt(a*a + b*b) }

@@ -15,6 +15,9 @@ const (
 	// leastJump is the least displacement, V, that is called a jump: twice the
 	// scatter of a handheld's gate reading (judgement).
 	leastJump = 1.5e-3
+	// mostDropped bounds the points that are dropped from a very long curve before
+	// it is given up.
+	mostDropped = 1000
 	// pairReach bounds the pairs that are compared on very long curves.
 	pairReach = 300
 )
@@ -40,7 +43,7 @@ func (w *work) dropContradictions() {
 	for j := range w.pts {
 		w.base = math.Min(w.base, math.Max(0, w.pts[j].i))
 		top = math.Max(top, w.pts[j].i)
-		falls = falls || top-w.pts[j].i > fallTolerance*math.Abs(top)
+		falls = falls || top-w.pts[j].i > fallTolerance*math.Abs(top)+2*w.pts[j].q+2*w.tiny
 	}
 	if !falls {
 		return
@@ -68,19 +71,27 @@ func (w *work) dropContradictions() {
 		w.falling = true // not for cleaning: the whole curve says so
 		return
 	}
-	for {
+	rank := make([]int, n) // place before anything was dropped: which pairs were counted
+	for j := range rank {
+		rank[j] = j
+	}
+	for dropped := 0; ; dropped++ {
 		j := w.worst(counts)
 		if counts[j] == 0 {
 			return
 		}
+		if dropped == mostDropped {
+			w.hopeless = true
+			return
+		}
 		p := w.pts[j]
 		for i := range w.pts {
-			near := i > j-pairReach && i < j+pairReach
+			near := rank[i] > rank[j]-pairReach && rank[i] < rank[j]+pairReach
 			if near && (i < j && w.contradicts(&w.pts[i], &p) || i > j && w.contradicts(&p, &w.pts[i])) {
 				counts[i]--
 			}
 		}
-		counts = slices.Delete(counts, j, j+1)
+		counts, rank = slices.Delete(counts, j, j+1), slices.Delete(rank, j, j+1)
 		code, text := w.nameFault(j)
 		w.drop(j, code, text)
 	}

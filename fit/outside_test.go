@@ -2,9 +2,11 @@ package fit
 
 import (
 	"encoding/csv"
+	"maps"
 	"math"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
@@ -135,8 +137,15 @@ func (o *outsideCurve) read(t *testing.T) {
 	o.curve = Curve{Vg: o.vg, Id: o.id, Vl: cols["vl_V"]}
 }
 
-func TestExploreOutside(t *testing.T) {
+// At steps of 10 mV or less, noise-free, in every circuit and device (n- and
+// p-channel, enhancement and depletion): the gate voltage at 1, 10, 100 and 250
+// mA lies within 0.5 mV of the dense curve.
+func TestOutsideCurves(t *testing.T) {
+	worst, where, n := 0.0, "", 0
 	for _, o := range outsideCurves(t) {
+		if o.step != "10mV" && o.step != "dense" || o.meter != "none" {
+			continue
+		}
 		for k, want := range o.truth {
 			if math.IsNaN(want) {
 				continue
@@ -144,15 +153,135 @@ func TestExploreOutside(t *testing.T) {
 			s := o.setup
 			s.TestCurrent = o.currents[k]
 			r := One(o.curve, s)
-			d := (r.Vgsth.Value - want) * 1e3
-			codes := ""
-			for _, w := range r.Warnings {
-				codes += " " + w.Code
+			n++
+			if r.State != Measured || len(r.LeftOut) > 0 {
+				t.Errorf("%s at %g A: %s %s, left out %v", o.file, o.currents[k], r.State, r.Why, r.LeftOut)
 			}
-			if k == 0 && (len(r.LeftOut) > 0 || r.State != Measured) {
-				t.Logf("LEFT %s %v %s %v", o.file, r.State, r.Why, r.LeftOut)
+			e := math.Abs(r.Vgsth.Value - want)
+			if !(e <= 0.5e-3) {
+				t.Errorf("%s at %g A: off by %.3f mV", o.file, o.currents[k], 1e3*e)
 			}
-			t.Logf("%-34s %5.0f mA err %8.3f mV u %7.3f n %2d %s", o.file, 1e3*o.currents[k], d, r.Vgsth.U*1e3, r.Vgsth.N, codes)
+			if e > worst {
+				worst, where = e, o.file
+			}
+			// A warning of a coarse grid would be wrong here.
+			if r.Has(CodeCoarseNearCurrent) {
+				t.Errorf("%s at %g A is called coarse", o.file, o.currents[k])
+			}
 		}
+	}
+	t.Logf("%d values, worst %.3f mV (%s)", n, 1e3*worst, where)
+}
+
+// The same devices read by simulated meters: no state but measured, no sound
+// point left out, and honest uncertainties at steps of 10 mV. On the 50 mV grid
+// the corner that the level-3 model has at its knee (real parts have none) cannot
+// be seen between points; there the truth lies within 3u for nine of ten.
+func TestOutsideUncertainty(t *testing.T) {
+	var fine, coarse, strong honesty
+	for _, o := range outsideCurves(t) {
+		if o.meter == "none" {
+			continue
+		}
+		for k, want := range o.truth {
+			if math.IsNaN(want) {
+				continue
+			}
+			s := o.setup
+			s.TestCurrent = o.currents[k]
+			r := One(o.curve, s)
+			if r.State != Measured || len(r.LeftOut) > 0 {
+				t.Errorf("%s at %g A: %s %s, left out %v", o.file, o.currents[k], r.State, r.Why, r.LeftOut)
+				continue
+			}
+			err := r.Vgsth.Value - want
+			switch {
+			case o.step == "10mV":
+				fine.add(err, r.Vgsth.U)
+			case o.currents[k] >= 100e-3:
+				strong.add(err, r.Vgsth.U)
+			default:
+				coarse.add(err, r.Vgsth.U)
+			}
+		}
+	}
+	fine.check(t, "10 mV, 1 to 250 mA")
+	strong.check(t, "50 mV, 100 and 250 mA")
+	t.Logf("50 mV, 1 and 10 mA: %s, within 3u %.1f %%", &coarse, 100*coarse.within(3))
+	if coarse.within(3) < 0.9 || coarse.median() < 0.3 {
+		t.Error("50 mV near the knee: dishonest")
+	}
+}
+
+// The extrapolated thresholds against VTO of the card, in the regions where each
+// is valid; limits after the known bias of each method on a bent curve (θ = 0.1,
+// and 0.1 Ω in the source for l3r).
+func TestOutsideThresholds(t *testing.T) {
+	sums := map[string][]float64{}
+	for _, o := range outsideCurves(t) {
+		s := o.setup
+		s.TestCurrent = 1e-3
+		r := One(o.curve, s)
+		if s.Circuit == Load && s.RL > 100 {
+			if r.Vt.Ok() {
+				t.Errorf("%s: a threshold from a sweep that ends at the knee", o.file)
+			}
+			continue
+		}
+		want := map[Circuit]string{Diode: "sqrt", Load: "sqrt", Fixed: "sqrt"}[s.Circuit]
+		if s.Circuit == Fixed && math.Abs(s.Vds) < 1 {
+			want = "ratio"
+		}
+		if r.Method != want {
+			t.Errorf("%s: method %q, codes %s", o.file, r.Method, codesOf(r))
+			continue
+		}
+		vto := o.vto
+		if o.channelP {
+			vto = -math.Abs(vto)
+		}
+		for m, v := range r.VtBy {
+			e := v.Vt.Value - vto
+			if o.channelP {
+				e = -e
+			}
+			limit := map[string]float64{"sqrt": 11e-3, "linear": 12e-3, "ratio": 4e-3}[m]
+			if o.device == "l3r" && m != "ratio" {
+				limit *= 2
+			}
+			if math.Abs(e) > limit+3*v.Vt.U {
+				t.Errorf("%s: %s off by %.2f mV, u %.2f mV", o.file, m, 1e3*e, 1e3*v.Vt.U)
+			}
+			key := o.device + " " + o.circuit + " " + m
+			sums[key] = append(sums[key], 1e3*e)
+			if b := math.Abs(v.Beta.Value/o.beta - 1); b > 0.32 {
+				t.Errorf("%s: %s β %.3f for %g", o.file, m, v.Beta.Value, o.beta)
+			}
+		}
+		if m := "ratio"; r.Method == m {
+			near(t, o.file+" θ + β R_S", r.Theta.Value, o.theta+o.beta*o.rs, 0.012)
+		}
+	}
+	for _, key := range slices.Sorted(maps.Keys(sums)) {
+		t.Logf("%-22s off by %5.2f … %5.2f mV", key, slices.Min(sums[key]), slices.Max(sums[key]))
+	}
+}
+
+// Below the knee the simulator's slope factor is n = 1.46407, 87.15 mV a decade:
+// from 10 µA to 100 µA that is what two constant-current values must lie apart.
+func TestOutsideSubThreshold(t *testing.T) {
+	found := false
+	for _, o := range outsideCurves(t) {
+		if o.device != "l3" || o.circuit != "fixed" || o.setup.Vds != 10 || o.step != "10mV" || o.meter != "none" {
+			continue
+		}
+		found = true
+		s := o.setup
+		s.TestCurrent, s.IdleCurrent = 10e-6, 100e-6
+		r := One(o.curve, s)
+		near(t, "a decade", r.VgsIdle.Value-r.Vgsth.Value, 1.46407*math.Ln10*1.380649e-23*300.15/1.602176634e-19, 0.2e-3)
+	}
+	if !found {
+		t.Error("no such curve")
 	}
 }

@@ -38,7 +38,7 @@ func (w *work) scatterNear(b int) float64 {
 	near := w.pts[b].i
 	flat := flatShare * w.risingTo(b)
 	for j := max(2, b-scatterReach); j < min(len(w.pts)-2, b+scatterReach); j++ {
-		if i := w.pts[j].i; i > scatterRatio*near || i < near/scatterRatio {
+		if i := w.pts[j].i; i > scatterRatio*near*tie || i*tie < near/scatterRatio {
 			continue
 		}
 		if !(w.logSlope(j-2, j+2) > flat) {

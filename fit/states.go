@@ -66,7 +66,22 @@ func (w *work) dead() (State, string) {
 	if low < w.s.TestCurrent/2 && !w.wentWellUp() {
 		return "", "" // a leakage, and the sweep may have ended before turn-on
 	}
+	if w.scattered() {
+		return "", ""
+	}
 	return w.deadOn(low, high, third)
+}
+
+// scattered reports whether the middle half of the currents spans more than a
+// fifth of their median: then they are no one current.
+func (w *work) scattered() bool {
+	n := len(w.pts)
+	v := make([]float64, n)
+	for j := range w.pts {
+		v[j] = w.pts[j].i
+	}
+	m := median(v) // sorts v
+	return v[3*n/4]-v[n/4] > 0.2*m
 }
 
 func (w *work) channel() string {

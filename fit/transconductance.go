@@ -18,7 +18,7 @@ const (
 	// lie apart, and leanShare the share of the difference of the leaning parabolas
 	// that counts as uncertainty (chosen on self-made curves).
 	slopesAgree = 1.0
-	leanShare   = 0.5
+	leanShare   = 1.0
 )
 
 // slopePoints is the curve as slopes are taken of it: points nearer together
@@ -133,7 +133,7 @@ func (s *slopePoints) sober(p *poly, o ordinate, j int) (g float64, m int) {
 	lo, hi := math.Min(left, right), math.Max(left, right)
 	h := math.Min(s.x[j]-s.x[j-1], s.x[j+1]-s.x[j])
 	doubt := 0.003*hi + 3*rss(s.e[j]*hi, s.u[j])/h
-	for m = s.m; ; m -= 2 {
+	for m = s.m; ; m -= 2 * max(1, m/8) {
 		g, _ = s.slopeAt(p, o, j, m, s.x[j])
 		if m <= 3 || g >= lo-doubt && g <= hi+doubt {
 			return g, m

@@ -30,10 +30,11 @@ type work struct {
 	vddRead bool    // V_DD was read point by point
 	least   float64 // V, lower bound of the supply from the greatest V_L; NaN
 
-	ties    bool    // several points share a gate reading: its display is coarse against the steps
-	base    float64 // A, smallest current of the curve if above zero: leakage
-	tiny    float64 // A, current below which no spikes are looked for
-	falling bool    // the current falls as the gate is driven harder
+	ties     bool    // several points share a gate reading: its display is coarse against the steps
+	base     float64 // A, smallest current of the curve if above zero: leakage
+	tiny     float64 // A, current below which no spikes are looked for
+	hopeless bool    // more points contradict each other than can be dropped
+	falling  bool    // the current falls as the gate is driven harder
 
 	pts   []point // usable points in the order in which the part turns on
 	grid  float64 // V, step that the digits of the gate readings show; 0: none
@@ -142,7 +143,7 @@ func greatest(x []float64) float64 {
 // the load circuit it is at least the greatest V_L.
 func (w *work) supply() {
 	w.vdd, w.least = math.Abs(w.s.Vdd), math.NaN()
-	if w.vdd == 0 {
+	if !positive(w.vdd) {
 		w.vdd = math.NaN()
 	}
 	if v := math.Abs(greatest(w.c.Vdd)); v > 0 {
