@@ -84,8 +84,7 @@ func (w *work) resistiveCurve() (*resistive, bool) {
 			continue
 		}
 		x := r.x[r.lo[j] : r.lo[j]+m]
-		var p poly
-		if p.fit(x, r.i[r.lo[j]:r.lo[j]+m], nil, 2) {
+		if p := &w.poly; p.fit(x, r.i[r.lo[j]:r.lo[j]+m], nil, 2) {
 			p.maps(r.x[j], nil, r.maps[j*m:(j+1)*m])
 			_, r.g[j] = p.at(r.x[j])
 			g = append(g, r.g[j])

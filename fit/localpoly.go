@@ -49,7 +49,11 @@ func (p *poly) fit(x, y, w []float64, degree int) bool {
 	}
 	p.x, p.w, p.degree = x, w, degree
 	if need := (degree + 1) * m; cap(p.b) < need {
-		p.b = make([]float64, need, max(need, (maxDegree+1)*(2*windowSide+2)))
+		room := need
+		if degree > 1 { // a window that may grow
+			room = max(need, (maxDegree+1)*(2*windowSide+2))
+		}
+		p.b = make([]float64, need, room)
 	} else {
 		p.b = p.b[:need]
 	}

@@ -26,18 +26,33 @@ const (
 // their slope is noise.
 type slopePoints struct {
 	x, i, u []float64 // V, A, A
+	rt, ln  []float64 // √i and ln i, NaN where i is not above zero
 	e       []float64 // V, standard deviation of x
 	from    []int     // index of the first of the points merged
 	m       int       // points in a window, odd
-	degree  int
-	least   int // points in the narrowest window that is worth a slope, odd
+	least   int       // points in the narrowest window that is worth a slope, odd
+	degree  int       // of the local polynomials
+}
+
+// ordinates are those of all points.
+func (s *slopePoints) ordinates(o ordinate) []float64 {
+	switch o {
+	case root:
+		return s.rt
+	case logarithm:
+		return s.ln
+	}
+	return s.i
 }
 
 // forSlopes merges near neighbours; e is the scatter in volts.
 func (w *work) forSlopes(e float64) slopePoints {
 	n := len(w.pts)
-	f := make([]float64, 4*n)
-	s := slopePoints{x: f[:0:n], i: f[n : n : 2*n], u: f[2*n : 2*n : 3*n], e: f[3*n : 3*n], from: make([]int, 0, n)}
+	f := make([]float64, 6*n)
+	s := slopePoints{
+		x: f[:0:n], i: f[n : n : 2*n], u: f[2*n : 2*n : 3*n], e: f[3*n : 3*n : 4*n],
+		rt: f[4*n : 4*n : 5*n], ln: f[5*n : 5*n], from: make([]int, 0, n),
+	}
 	for j := 0; j < n; {
 		// Within three standard deviations of the first of the group.
 		near := 3 * rss(e, w.pts[j].ux)
@@ -55,6 +70,14 @@ func (w *work) forSlopes(e float64) slopePoints {
 		s.from = append(s.from, j)
 		s.x = append(s.x, x/m)
 		s.i = append(s.i, i/m)
+		rt, ln := w.pts[j].rt, w.pts[j].ln
+		if m > 1 {
+			rt, ln = math.Sqrt(i/m), math.Log(i/m)
+		}
+		if !(i > 0) {
+			rt, ln = math.NaN(), math.NaN()
+		}
+		s.rt, s.ln = append(s.rt, rt), append(s.ln, ln)
 		s.u = append(s.u, math.Sqrt(uu)/m)
 		s.e = append(s.e, rss(e, w.pts[j].ux)/math.Sqrt(m))
 		j = k
@@ -66,8 +89,8 @@ func (w *work) forSlopes(e float64) slopePoints {
 
 // width is the number of points of a window: m, more where steps are fine
 // against the scatter e for a slope of that relative noise, fewer where there
-// are no more. The slope over m points
-// a step h apart scatters by e √12 / (h m^1.5), relative to the slope itself.
+// are no more. The slope over m points a step h apart scatters by
+// e √12 / (h m^1.5), relative to the slope itself.
 func (s *slopePoints) width(e, noise float64, m int) int {
 	n := len(s.x)
 	if n > 1 && e > 0 {
@@ -89,15 +112,7 @@ func (s *slopePoints) slopeAt(p *poly, o ordinate, j, m int, x float64) (g, back
 	n := len(s.x)
 	m = min(m, n)
 	lo := max(0, min(j-m/2, n-m))
-	var y [slopeWindowMax]float64
-	for k := range m {
-		i := s.i[lo+k]
-		if o != plain && !(i > 0) {
-			return math.NaN(), math.NaN()
-		}
-		y[k] = o.of(i)
-	}
-	if !p.fit(s.x[lo:lo+m], y[:m], nil, min(s.degree, m-1)) {
+	if !p.fit(s.x[lo:lo+m], s.ordinates(o)[lo:lo+m], nil, min(s.degree, m-1)) {
 		return math.NaN(), math.NaN()
 	}
 	v, d := p.at(x)
@@ -117,9 +132,17 @@ func (s *slopePoints) slopeScatter(p *poly, o ordinate, j, m int, x, back float6
 	m = min(m, n)
 	lo := max(0, min(j-m/2, n-m))
 	var sigma [slopeWindowMax]float64
-	rise := (o.of(s.i[lo+m-1]) - o.of(s.i[lo])) / (s.x[lo+m-1] - s.x[lo])
-	for k := range m {
-		sigma[k] = rss(s.u[lo+k]*o.slope(s.i[lo+k]), rise*s.e[lo+k])
+	y := s.ordinates(o)[lo : lo+m]
+	rise := (y[m-1] - y[0]) / (s.x[lo+m-1] - s.x[lo])
+	for k, v := range y {
+		d := 1.0 // d(ordinate)/di
+		switch o {
+		case root:
+			d = 0.5 / v
+		case logarithm:
+			d = 1 / s.i[lo+k]
+		}
+		sigma[k] = rss(s.u[lo+k]*d, rise*s.e[lo+k])
 	}
 	return math.Abs(back) * p.scatter(x, sigma[:m], true)
 }
@@ -152,7 +175,7 @@ func (w *work) ordinateAt(s *slopePoints, j int) ordinate {
 	if !(s.i[a] > 0) || !(s.i[b] > s.i[a]) {
 		return plain
 	}
-	if 2*(s.x[b]-s.x[a])/math.Log(s.i[b]/s.i[a]) < knee {
+	if 2*(s.x[b]-s.x[a]) < knee*(s.ln[b]-s.ln[a]) {
 		return logarithm
 	}
 	return root
@@ -198,15 +221,12 @@ func (s *slopePoints) leaning(p *poly, o ordinate, j, m int, x, back float64) fl
 	if m-cut < 3 {
 		return 0
 	}
-	var y [slopeWindowMax]float64
-	for k := range m {
-		y[k] = o.of(s.i[lo+k])
-	}
+	y := s.ordinates(o)[lo : lo+m]
 	if !p.fit(s.x[lo:lo+m-cut], y[:m-cut], nil, 2) {
 		return 0
 	}
 	_, left := p.at(x)
-	if !p.fit(s.x[lo+cut:lo+m], y[cut:m], nil, 2) {
+	if !p.fit(s.x[lo+cut:lo+m], y[cut:], nil, 2) {
 		return 0
 	}
 	_, right := p.at(x)

@@ -39,6 +39,7 @@ type work struct {
 	pts   []point // usable points in the order in which the part turns on
 	grid  float64 // V, step that the digits of the gate readings show; 0: none
 	poly  poly    // scratch
+	win   window  // scratch
 	left  []LeftOut
 	warns []Warning
 }
