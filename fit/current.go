@@ -83,10 +83,15 @@ func (w *work) calibrateSupply() {
 // wrong with it, and decides whose scale is kept.
 func (w *work) compareMeters() {
 	var ratios []float64
-	topA, topL := 0.0, 0.0
+	var topA, topL, countL, countA float64
 	for j := range w.pts {
-		topA = math.Max(topA, math.Abs(w.pts[j].a))
-		topL = math.Max(topL, math.Abs(w.pts[j].l))
+		p := &w.pts[j]
+		if !math.IsNaN(p.a) {
+			topA, countA = math.Max(topA, math.Abs(p.a)), math.Max(countA, p.qa)
+		}
+		if !math.IsNaN(p.l) {
+			topL, countL = math.Max(topL, math.Abs(p.l)), math.Max(countL, p.ql)
+		}
 	}
 	deadA, deadL := true, true
 	for j := range w.pts {
@@ -101,11 +106,11 @@ func (w *work) compareMeters() {
 	}
 	other := w.loadName()
 	switch {
-	case deadA && topL > clearCounts*w.pts[len(w.pts)-1].ql && topL > w.supplyDoubt()*clearCounts:
+	case deadA && topL > clearCounts*countL && topL > w.supplyDoubt()*clearCounts:
 		w.warn(CodeCurrentMismatch, "The ammeter reads nothing while "+other+" reaches "+amps(topL)+": "+other+" is used.")
 		w.dropAmmeter()
 		return
-	case deadL && w.byLoad && topA > clearCounts*w.pts[len(w.pts)-1].ql:
+	case deadL && w.byLoad && topA > clearCounts*countA:
 		w.warn(CodeCurrentMismatch, "V_L reads nothing while the ammeter reaches "+amps(topA)+": the ammeter is used.")
 		w.dropLoad()
 		return

@@ -44,7 +44,7 @@ func (w *work) scatterNear(b int) float64 {
 		if !(w.logSlope(j-2, j+2) > flat) {
 			continue
 		}
-		if v, k, ok := w.pseudoResidual(j); ok {
+		if v, k, ok := w.residual(j); ok {
 			r = append(r, v)
 			known += k
 		}
@@ -108,6 +108,22 @@ func trimmedMean(kept, n int) float64 {
 	z := math.Sqrt2 * math.Erfinv(float64(kept)/float64(n))
 	p := float64(kept) / float64(n)
 	return (p - 2*z*math.Exp(-z*z/2)/math.Sqrt(2*math.Pi)) / p
+}
+
+// residual is pseudoResidual, computed once for every point: the points do not
+// change after they were cleaned.
+func (w *work) residual(j int) (square, known float64, ok bool) {
+	if w.residuals == nil {
+		w.residuals = make([][2]float64, len(w.pts))
+	}
+	r := &w.residuals[j]
+	if *r == [2]float64{} {
+		var ok bool
+		if r[0], r[1], ok = w.pseudoResidual(j); !ok {
+			r[1] = -1
+		}
+	}
+	return r[0], r[1], r[1] >= 0
 }
 
 // pseudoResidual is the squared distance, in V², of point j from the cubic

@@ -133,6 +133,9 @@ func TestDeadParts(t *testing.T) {
 				if code := stateCode(r.State); code != "" && !r.Has(code) {
 					t.Errorf("%s: no warning %s", d.name, code)
 				}
+				if r.Has(CodeCurrentMismatch) {
+					t.Errorf("%s, columns %s: %s", d.name, col, warningText(r, CodeCurrentMismatch))
+				}
 				if r.Vgsth.Ok() || r.Vt.Ok() || r.GmMax.Ok() {
 					t.Errorf("%s: a dead part has numbers", d.name)
 				}

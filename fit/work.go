@@ -36,12 +36,13 @@ type work struct {
 	hopeless bool    // more points contradict each other than can be dropped
 	falling  bool    // the current falls as the gate is driven harder
 
-	pts   []point // usable points in the order in which the part turns on
-	grid  float64 // V, step that the digits of the gate readings show; 0: none
-	poly  poly    // scratch
-	win   window  // scratch
-	left  []LeftOut
-	warns []Warning
+	pts       []point      // usable points in the order in which the part turns on
+	grid      float64      // V, step that the digits of the gate readings show; 0: none
+	poly      poly         // scratch
+	win       window       // scratch
+	residuals [][2]float64 // squares and their known parts, V²; a known part below zero: none
+	left      []LeftOut
+	warns     []Warning
 }
 
 // point is one usable point, with the signs of an n-channel part.
