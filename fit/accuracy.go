@@ -65,7 +65,7 @@ func decimals(x float64) (int, bool) {
 	for digits := range maxDigits {
 		d := digits - lead
 		y := x * pow10(d)
-		if math.Abs(y-math.Round(y)) < 1e-10*y+1e-9 && math.Round(y) > 0 {
+		if r := math.Floor(y + 0.5); r > 0 && math.Abs(y-r) < 1e-10*y+1e-9 {
 			return d, true
 		}
 	}

@@ -165,7 +165,7 @@ func (p *poly) solve(y, start, lo, hi float64) (x, slope float64) {
 			return math.NaN(), math.NaN()
 		}
 		next := math.Min(math.Max(x-(v-y)/s, lo), hi)
-		if math.Abs(next-x) <= 1e-10*(hi-lo) {
+		if math.Abs(next-x) <= 1e-6*(hi-lo) { // the step after it squares that
 			_, s = p.at(next)
 			return next, s
 		}

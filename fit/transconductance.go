@@ -271,11 +271,13 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		}
 	}
 	if at >= 0 && best > 0 {
-		g, u, used := s.widen(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at])
-		_, back := s.slopeAt(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at])
+		o := w.ordinateAt(&s, at)
+		_, back := s.slopeAt(&w.poly, o, at, width, s.x[at])
+		chance := s.slopeScatter(&w.poly, o, at, width, s.x[at], back)
+		g, u, used := s.widen(&w.poly, o, at, width, s.x[at])
 		// The greatest of many is great by chance as well: the scatter of one of
 		// them is left in.
-		u = rss(u, s.slopeScatter(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at], back))
+		u = rss(u, chance)
 		r.GmMax = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, s.i[at], 1, 1)
 	}
 	if math.IsNaN(idle.v) {
