@@ -37,6 +37,9 @@ func Combine(rs []Result, dirs []string) Result {
 	r.LeftOut = nil
 	r.Warnings = joinWarnings(rs)
 	r.VtBy = combineThresholds(rs, lead)
+	for i := range rs {
+		r.GmRising = r.GmRising || rs[i].GmRising
+	}
 	for _, k := range Keys {
 		if len(rs) == 1 {
 			break

@@ -279,6 +279,8 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		// them is left in.
 		u = rss(u, chance)
 		r.GmMax = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, s.i[at], 1, 1)
+		// Within a window of the end nothing shows that it falls again.
+		r.GmRising = at >= n-m/2-1-m
 	}
 	if math.IsNaN(idle.v) {
 		return
