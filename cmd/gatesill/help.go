@@ -22,8 +22,8 @@ var topics = []struct {
 
 func helpCmd(env *job.Env) *cobra.Command {
 	cmd := &cobra.Command{
-		Use: "help [codes|bench-file|exit-codes|VERB]", Short: "Help on a verb, a warning code or a topic",
-		Example: "  gatesill help import\n  gatesill help codes",
+		Use: "help [codes|CODE|bench-file|exit-codes|VERB]", Short: "Help on a verb, a warning code or a topic",
+		Example: "  gatesill help import\n  gatesill help codes\n  gatesill help two-populations",
 		RunE: func(cmd *cobra.Command, args []string) error {
 			root := cmd.Root()
 			if len(args) == 0 {
@@ -33,6 +33,9 @@ func helpCmd(env *job.Env) *cobra.Command {
 				if t.name == args[0] {
 					return t.show(env)
 				}
+			}
+			if found, err := job.HelpCode(env, args[0]); found {
+				return err
 			}
 			c, rest, err := root.Find(args)
 			if err != nil || c == root || len(rest) > 0 {

@@ -85,9 +85,9 @@ uncertainty stays in its bin and is marked maybe, with the bin across the edge.`
 	fs := cmd.Flags()
 	fs.SortFlags = false
 	fs.Var(choice{&rq.By, []string{"vgsth", "vgs-idle", "gm-idle"}}, "by", "quantity (default: gate bias at the idle current where the lot has one)")
-	fs.StringVar(&rq.Width, "width", "", "width of a bin: 50mV")
+	fs.StringVar(&rq.Width, "width", "", "width of a bin: `50mV`")
 	fs.StringSliceVar(&rq.Edges, "edges", nil, "edges of the bins: `a,b,c`")
-	fs.IntVar(&rq.Bins, "bins", 0, "number of bins")
+	fs.IntVar(&rq.Bins, "bins", 0, "`NUMBER` of bins")
 	fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 when a device is in no bin")
 	atFlag(cmd, &o)
 	return cmd

@@ -36,6 +36,10 @@ type ImportRequest struct {
 	Stdin                      io.Reader
 }
 
+// rowsAlike is how many points a sweep must have before the same ones under
+// another name are remarkable: single readings are alike by chance.
+const rowsAlike = 5
+
 // fateDry is the fate of a file that was only looked at.
 const fateDry = "looked at, not stored"
 
@@ -119,6 +123,7 @@ type importer struct {
 	next    int               // position of the next sweep
 	same    string            // how the file before was read
 	sameAs  string            // its name
+	answers map[string]string // to questions of the reader, by their text
 }
 
 // prepare reads the bench file and looks whether store and lot are there.
@@ -134,7 +139,7 @@ func (im *importer) prepare(ctx context.Context) error {
 			im.env.warn("the calibration of the %s meter %s was due on %s", m.Role, report.Clean(m.Name), m.Due)
 		}
 	}
-	im.seen = map[string]string{}
+	im.seen, im.answers = map[string]string{}, map[string]string{}
 	im.part = record.NewPart(unnamedPart(im.rq.Lot))
 	db, err := im.env.open(ctx, false, im.rq.DryRun)
 	if errors.Is(err, store.ErrNoStore) {
@@ -220,7 +225,7 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 		return out, err
 	} else if ok && !im.rq.Again {
 		out.Fate, out.Layout = report.FateSeen, prior.Layout
-		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; --again imports them once more", report.Clean(prior.Name), prior.ImportedAt[:10])
+		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; nothing was changed. To read the file anew, with what is given now, use --again: the earlier sweeps are set aside", report.Clean(prior.Name), prior.ImportedAt[:10])
 		return out, nil
 	}
 	opt, progress := im.options(ctx, display)
@@ -242,6 +247,9 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	}
 	sweeps, left, err := im.ofLot(f)
 	if err != nil {
+		return out, err
+	}
+	if err := currentless(f, sweeps); err != nil {
 		return out, err
 	}
 	out.Layout, out.Dialect, out.RowsRefused = f.Layout, f.Dialect, f.Refused
@@ -336,7 +344,9 @@ func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (p
 // options completes the reader's options for one file.
 func (im *importer) options(ctx context.Context, name string) (table.Options, *progress) {
 	opt := im.rq.Table
-	opt.Ask = im.env.Ask
+	if im.env.Ask != nil {
+		opt.Ask = im.ask
+	}
 	opt.Remembered = func(signature string) (m map[string]string, ok bool) {
 		if im.db == nil {
 			return nil, false
@@ -350,6 +360,19 @@ func (im *importer) options(ctx context.Context, name string) (table.Options, *p
 	p := newProgress(im.env, report.Clean(name))
 	opt.Progress = p.At
 	return opt, p
+}
+
+// ask puts a question once for all files of the import that raise it in the
+// same words.
+func (im *importer) ask(q table.Question) (string, error) {
+	if answer, ok := im.answers[q.Text]; ok {
+		return answer, nil
+	}
+	answer, err := im.env.Ask(q)
+	if err == nil {
+		im.answers[q.Text] = answer
+	}
+	return answer, err
 }
 
 // ofLot picks the sweeps that belong to the lot. A file with a lot column gives
@@ -388,6 +411,59 @@ func (im *importer) ofLot(f *table.File) ([]table.Sweep, map[string]int, error) 
 	return out, byLot, nil
 }
 
+// currentless refuses curves from which no current can be had: a voltage at the
+// load or the drain says nothing without the resistor.
+func currentless(f *table.File, sweeps []table.Sweep) error {
+	for i := range sweeps {
+		s := &sweeps[i]
+		if s.Direction == record.Spot || s.Column(record.ID) != nil {
+			continue
+		}
+		c := &s.Condition
+		switch {
+		case s.Column(record.VL) != nil && c.RL.IsKnown():
+		case s.Column(record.VD) != nil && c.RL.IsKnown() && (c.VDD.IsKnown() || s.Column(record.VDD) != nil):
+		case s.Column(record.VL) != nil || s.Column(record.VD) != nil:
+			return &table.Error{File: f.Name, Err: fmt.Errorf("%w: no drain current in it, and none to be had from the voltage without the load resistor", table.ErrRefused),
+				Hint: "--rl 10 --vdd 12V --circuit load, with the values of your bench"}
+		}
+	}
+	return nil
+}
+
+// signs guesses from the signs of the readings what the part was not said to
+// be: "" when they fit it.
+func (im *importer) signs(sweeps []table.Sweep) string {
+	gate, drain, n := 0, 0, 0
+	for i := range sweeps {
+		vg, id := sweeps[i].Values(record.VG), sweeps[i].Values(record.ID)
+		for j := range min(len(vg), len(id)) {
+			n++
+			switch {
+			case vg[j] < 0:
+				gate--
+			case vg[j] > 0:
+				gate++
+			}
+			switch {
+			case id[j] < 0:
+				drain--
+			case id[j] > 0:
+				drain++
+			}
+		}
+	}
+	most := n * 8 / 10
+	switch lot := Quote(im.rq.Lot); {
+	case n == 0 || gate > -most:
+	case drain <= -n/2 && im.part.Channel == record.NChannel:
+		return "gate voltages and currents are negative, as of a p-channel part; if it is one: gatesill lot edit " + lot + " --channel p"
+	case drain >= n/2 && im.part.Channel == record.NChannel && im.part.Mode == record.Enhancement:
+		return "current flows at negative gate voltages, as in a depletion part; if it is one: gatesill lot edit " + lot + " --mode depletion --off-voltage=-5V, with its own off voltage"
+	}
+	return ""
+}
+
 // tell warns of what the reader noticed and of rows known under another name.
 func (im *importer) tell(f *table.File, sweeps []table.Sweep) {
 	for _, r := range f.Remarks {
@@ -397,9 +473,12 @@ func (im *importer) tell(f *table.File, sweeps []table.Sweep) {
 	for i := range sweeps {
 		s := &sweeps[i]
 		noCircuit = noCircuit || s.Condition.Circuit == record.NoCircuit && s.Direction != record.Spot
-		if other, ok := im.seen[s.DataHash]; ok && other != s.Device {
+		if other, ok := im.seen[s.DataHash]; ok && other != s.Device && s.Len() >= rowsAlike {
 			im.env.warn("%s: device %s has the same rows as device %s [same-rows]", report.Clean(f.Name), report.Clean(s.Device), report.Clean(other))
 		}
+	}
+	if guess := im.signs(sweeps); guess != "" {
+		im.env.warn("%s: %s", report.Clean(f.Name), guess)
 	}
 	if noCircuit {
 		im.env.warn("%s: circuit not given, so only constant-current values will be had; --circuit load, diode or fixed tells it [no-circuit]", report.Clean(f.Name))

@@ -5,6 +5,7 @@ import (
 	"errors"
 
 	"gatesill/acquire/table"
+	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
 )
@@ -22,6 +23,9 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 	err := im.db.Update(ctx, func(tx *store.Tx) error {
 		lot, err := im.lot(tx)
 		if err != nil {
+			return err
+		}
+		if err := im.setAside(tx, lot, f); err != nil {
 			return err
 		}
 		src := record.Source{LotID: lot.ID, Name: f.Name, Hash: f.Hash, Size: f.Size, Layout: f.Layout, Dialect: mustJSON(f.Dialect), ImportedAt: record.Now()}
@@ -59,6 +63,37 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 	im.session, im.next, im.stored = session, next, true
 	for i := range sweeps {
 		im.seen[sweeps[i].DataHash] = sweeps[i].Device
+	}
+	return nil
+}
+
+// setAside excludes the sweeps of earlier imports of the same bytes, so that
+// reading a file again corrects what was said wrongly the first time. The rows
+// stay, and the audit trail says why.
+func (im *importer) setAside(tx *store.Tx, lot record.Lot, f *table.File) error {
+	sources, err := tx.Sources(lot.ID)
+	if err != nil {
+		return err
+	}
+	same := map[string]bool{}
+	for _, s := range sources {
+		same[s.ID] = s.Hash == f.Hash
+	}
+	sweeps, err := tx.Sweeps(lot.ID, false)
+	if err != nil {
+		return err
+	}
+	n := 0
+	for _, s := range sweeps {
+		if same[s.SourceID] && !s.Excluded {
+			n++
+			if err := tx.ExcludeSweep(s.ID, true, "imported again from the same file"); err != nil {
+				return err
+			}
+		}
+	}
+	if n > 0 {
+		im.env.talk("%s: %s of its earlier import set aside", report.Clean(f.Name), count(n, "sweep"))
 	}
 	return nil
 }

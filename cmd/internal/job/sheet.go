@@ -147,58 +147,65 @@ func placeSweeps(s *report.Sheet, sweeps []record.Sweep) {
 // currents settles test current and idle current of the sheet.
 func currents(s *report.Sheet, at record.Num) {
 	s.IdleCurrent = s.Part.IdleCurrent.Float()
-	spot, gm := spotCurrents(s)
+	spots, gm := spotCurrents(s)
 	switch {
 	case at.IsKnown():
 		s.TestCurrent, s.TestBasis = math.Abs(at.Float()), "--at"
 	case s.Part.TestCurrent.IsKnown():
 		s.TestCurrent, s.TestBasis = s.Part.TestCurrent.Float(), "part"
-	case spot.IsKnown():
-		s.TestCurrent, s.TestBasis = spot.Float(), "spot list"
+	case len(spots) > 0:
+		s.TestCurrent, s.TestBasis = spots[0], "spot list"
 	default:
 		s.TestCurrent, s.TestBasis = defaultTestCurrent, "default"
 	}
-	if !s.Part.IdleCurrent.IsKnown() && gm.IsKnown() {
-		s.IdleCurrent = gm.Float() // a list that states g_m at a current means that as the idle current
+	switch {
+	case s.Part.IdleCurrent.IsKnown():
+	case len(gm) == 1: // a list that states g_m at a current means that as the idle current
+		s.IdleCurrent = gm[0]
+	case len(spots) == 2:
+		s.IdleCurrent = spots[1]
 	}
 }
 
-// spotCurrents gives the one current at which all spots of the lot were taken,
-// and the one at which their transconductance was; unknown when there are
-// curves, or several currents.
-func spotCurrents(s *report.Sheet) (spot, gm record.Num) {
-	one := func(have record.Num, x float64, first *bool) record.Num {
-		x = math.Abs(x)
-		if *first {
-			*first = false
-			return record.Known(x)
-		}
-		if v, ok := have.Get(); ok && math.Abs(v-x) <= 0.1*x {
-			return have
-		}
-		return record.Num{}
-	}
-	firstSpot, firstGm := true, true
+// spotCurrents gives the currents at which the spots of the lot were taken,
+// ascending, and those at which their transconductance was; none when there are
+// curves, or spots at more than two currents.
+func spotCurrents(s *report.Sheet) (spots, gm []float64) {
 	for _, d := range s.Devices {
 		for _, sw := range d.Sweeps {
 			if sw.Direction != record.Spot {
-				return record.Num{}, record.Num{}
+				return nil, nil
 			}
 			id, vg, g := sw.Values(record.ID), sw.Values(record.VG), sw.Values(record.GM)
-			for i := range id {
-				if math.IsNaN(id[i]) {
+			for i, x := range id {
+				if math.IsNaN(x) {
 					continue
 				}
 				if vg != nil && !math.IsNaN(vg[i]) {
-					spot = one(spot, id[i], &firstSpot)
+					spots = withCurrent(spots, math.Abs(x))
 				}
 				if g != nil && !math.IsNaN(g[i]) {
-					gm = one(gm, id[i], &firstGm)
+					gm = withCurrent(gm, math.Abs(x))
 				}
 			}
 		}
 	}
-	return spot, gm
+	if len(spots) > 2 {
+		spots = nil
+	}
+	slices.Sort(spots)
+	return spots, gm
+}
+
+// withCurrent adds a current to the list unless one within a tenth is there: a
+// one-resistor jig does not hold its current exactly.
+func withCurrent(list []float64, x float64) []float64 {
+	for _, have := range list {
+		if math.Abs(have-x) <= 0.1*have {
+			return list
+		}
+	}
+	return append(list, x)
 }
 
 // curveOf hands the columns of a sweep to the fit, overload as ±Inf.
@@ -256,7 +263,7 @@ func setupOf(s *report.Sheet, sw *record.Sweep) fit.Setup {
 		OffV: offVoltage(s.Part),
 		RL:   c.RL.Float(), RLTol: c.RLTol.Float(), Vdd: c.VDD.Float(), Vds: c.VDS.Float(), Burden: burden(sw),
 		TestCurrent: s.TestCurrent, IdleCurrent: s.IdleCurrent, MaxID: s.Part.MaxID.Float(), VgsthMax: s.Part.VgsthMax.Float(),
-		Gate: accuracy(sw, "gate"), Current: accuracy(sw, "current"), Load: accuracy(sw, "load"), Drain: accuracy(sw, "drain"),
+		Gate: accuracy(sw, "gate", record.VG), Current: accuracy(sw, "current", record.ID), Load: accuracy(sw, "load", record.VL), Drain: accuracy(sw, "drain", record.VD),
 		Spot: sw.Direction == record.Spot, Temperature: c.Temp.Float(),
 	}
 }
@@ -294,7 +301,9 @@ func burden(sw *record.Sweep) float64 {
 // (JCGM 100:2008 4.3.7 for a limit, 4.3.4 for a stated coverage).
 var divisors = map[string]float64{"limit": math.Sqrt(3), "k=2": 2, "99 %": 2.5758293035489}
 
-func accuracy(sw *record.Sweep, role string) []fit.Accuracy {
+// accuracy is what is known of the meter in a role: its statement by range, else
+// the last digit that was written down of its quantity, without a statement.
+func accuracy(sw *record.Sweep, role string, q record.Quantity) []fit.Accuracy {
 	var out []fit.Accuracy
 	for _, m := range sw.Instruments {
 		if m.Role != role {
@@ -306,6 +315,11 @@ func accuracy(sw *record.Sweep, role string) []fit.Accuracy {
 		}
 		for _, r := range m.Ranges {
 			out = append(out, fit.Accuracy{Top: r.Top, Percent: r.Percent, Counts: r.Counts, Resolution: r.Resolution, Noise: r.Noise.Or(0), Divisor: div})
+		}
+	}
+	if c := sw.Column(q); len(out) == 0 && c != nil {
+		if step := c.LastDigit(); step > 0 {
+			out = append(out, fit.Accuracy{Top: math.Inf(1), Resolution: step})
 		}
 	}
 	return out
@@ -330,13 +344,21 @@ func fitSheet(ctx context.Context, s *report.Sheet, method string) error {
 func fitDevice(s *report.Sheet, d *report.Device, method string) {
 	var rs []fit.Result
 	var dirs []string
+	seen := map[string]bool{}
 	for i := range d.Sweeps {
 		sw := &d.Sweeps[i]
-		if sw.Excluded {
+		why := sw.Why
+		if !sw.Excluded && sw.Len() >= rowsAlike && seen[sw.DataHash] {
+			why = "the same readings as an earlier sweep of this device, counted once"
+		} else if !sw.Excluded {
+			why = ""
+		}
+		if sw.Excluded || why != "" {
 			sw.Result = fit.NewResult()
-			sw.Result.State, sw.Result.Why = fit.Excluded, sw.Why
+			sw.Result.State, sw.Result.Why = fit.Excluded, why
 			continue
 		}
+		seen[sw.DataHash] = true
 		setup := setupOf(s, &sw.Sweep)
 		sw.Result = fit.One(sw.Curve, setup)
 		sw.Result.Choose(method)
@@ -410,7 +432,7 @@ func estimates(s *report.Sheet, method string) []record.Estimate {
 	for i := range s.Devices {
 		for j := range s.Devices[i].Sweeps {
 			sw := &s.Devices[i].Sweeps[j]
-			if sw.Excluded {
+			if sw.Result.State == fit.Excluded {
 				continue
 			}
 			est := record.Estimate{
