@@ -5,6 +5,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
+	"strings"
 	"testing"
 
 	"gatesill/fit"
@@ -152,7 +153,7 @@ func TestFalseAlarms(t *testing.T) {
 }
 
 func TestLongFalseAlarms(t *testing.T) {
-	long(t)
+	only := long(t)
 	kinds := []lotKind{
 		{name: "one quantity", keys: oneKey, draw: normal},
 		{name: "two quantities", keys: fiveKeys[1:3], draw: normal},
@@ -160,11 +161,16 @@ func TestLongFalseAlarms(t *testing.T) {
 		{name: "five of one model", dies: true},
 		{name: "steps of 3 sd", keys: oneKey, step: 3, draw: normal},
 		{name: "steps of 1 sd", keys: oneKey, step: 1, draw: normal},
+		{name: "steps of 0.6 sd", keys: oneKey, step: 0.6, draw: normal},
 		{name: "steps of 0.3 sd", keys: oneKey, step: 0.3, draw: normal},
+		{name: "steps of 0.1 sd", keys: oneKey, step: 0.1, draw: normal},
 		{name: "t5 tails", keys: oneKey, draw: t5},
 		{name: "uniform", keys: oneKey, draw: (*rand.Rand).Float64},
 	}
 	for _, k := range kinds {
+		if only != "1" && !strings.HasPrefix(k.name, only) {
+			continue
+		}
 		line := k.name + ":"
 		for _, n := range []int{4, 5, 6, 7, 8, 9, 10, 11, 12, 15, 20, 26, 30, 36, 40, 50, 55, 70, 90, 120, 400, 1500, 5000} {
 			runs := max(1000, min(20_000, 2_000_000/n))

@@ -99,25 +99,23 @@ type band struct {
 func bandOf(c *column, k float64, quantities int) band {
 	b := center(c)
 	b.basis, b.k = BasisLot, k
-	if k == 0 {
-		b.k = DefaultLimit(b.n, quantities)
+	if k > 0 {
+		b.widen(c, b.sd)
+		return b
 	}
-	b.widen(c)
-	if k == 0 {
-		b.narrow(c, esdLevel/float64(quantities))
-	}
+	b.k = DefaultLimit(b.n, quantities)
+	// A median distance of readings in steps is itself a whole number of steps,
+	// up to half a step less than it should be: in a large lot that alone would
+	// make false alarms.
+	even := stats.MADScale * stats.MADSorted(withAbove(evened(c.sorted, c.step), c.numAbove()))
+	b.widen(c, math.Max(b.sd, even))
+	b.narrow(c, esdLevel/float64(quantities))
 	return b
 }
 
 // center is median and robust spread of a column, with no limits yet.
 func center(c *column) band {
-	all := c.sorted
-	if above := c.numAbove(); above > 0 {
-		all = append(make([]float64, 0, len(c.sorted)+above), c.sorted...)
-		for range above {
-			all = append(all, math.Inf(1))
-		}
-	}
+	all := withAbove(c.sorted, c.numAbove())
 	sd := stats.MADScale * stats.MADSorted(all)
 	if !math.IsNaN(sd) {
 		sd = math.Max(math.Max(sd, c.least), floorOf(c.step, c.usual))
@@ -125,11 +123,42 @@ func center(c *column) band {
 	return band{n: len(c.sorted), mid: stats.MedianSorted(all), sd: sd, low: math.Inf(-1), high: math.Inf(1)}
 }
 
-// widen sets the limits k robust spreads from the median, with half a step of
+// withAbove puts devices above every value behind sorted values.
+func withAbove(sorted []float64, above int) []float64 {
+	if above == 0 {
+		return sorted
+	}
+	all := append(make([]float64, 0, len(sorted)+above), sorted...)
+	for range above {
+		all = append(all, math.Inf(1))
+	}
+	return all
+}
+
+// evened spreads equal readings evenly over the step that they were rounded to.
+func evened(sorted []float64, step float64) []float64 {
+	if step == 0 {
+		return sorted
+	}
+	out := make([]float64, 0, len(sorted))
+	for i := 0; i < len(sorted); {
+		j := i + 1
+		for j < len(sorted) && sorted[j]-sorted[i] < step/2 {
+			j++
+		}
+		for k := i; k < j; k++ {
+			out = append(out, sorted[i]+step*((float64(k-i)+0.5)/float64(j-i)-0.5))
+		}
+		i = j
+	}
+	return out
+}
+
+// widen sets the limits k spreads of sd from the median, with half a step of
 // slack: a reading may be that much nearer than it looks.
-func (b *band) widen(c *column) {
-	b.low = b.mid - b.k*b.sd - c.step/2
-	b.high = b.mid + b.k*b.sd + c.step/2
+func (b *band) widen(c *column, sd float64) {
+	b.low = b.mid - b.k*sd - c.step/2
+	b.high = b.mid + b.k*sd + c.step/2
 }
 
 // narrow takes the limits in to what the generalised ESD test lets pass: the
@@ -163,7 +192,7 @@ func bandKnown(c *column, sd float64, devices int, k float64, quantities int) ba
 	if k == 0 {
 		b.k = stats.UpperT(knownLevel/float64(2*max(b.n, 1)*quantities), 0.37*float64(devices))
 	}
-	b.widen(c)
+	b.widen(c, b.sd)
 	return b
 }
 

@@ -138,7 +138,7 @@ func TestEstimatorsDisagree(t *testing.T) {
 		{stats.IQR(c.sorted, stats.Type7) / 1.35, 0},
 	} {
 		b := band{mid: stats.MedianSorted(c.sorted), sd: e.sd, k: 6}
-		b.widen(c)
+		b.widen(c, b.sd)
 		n := 0
 		for i := range c.x {
 			if b.outside(c, i) {

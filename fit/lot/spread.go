@@ -247,10 +247,11 @@ func (l *judge) verdict(i int) Verdict {
 	d := &l.devs[i]
 	v := Verdict{Name: d.Name, Distance: make(map[fit.Key]float64, len(l.keys))}
 	for _, k := range l.keys {
-		v.Distance[k] = math.NaN()
+		far := math.NaN()
 		if j, ok := l.centers[k]; ok {
-			v.Distance[k] = j.band.distance(l.columns[k], i)
+			far = j.band.distance(l.columns[k], i)
 		}
+		v.Distance[k] = far
 	}
 	if d.Control || d.Result.State == fit.Excluded {
 		return v
@@ -326,7 +327,7 @@ func (l *judge) evenWarning() []fit.Warning {
 	if k > 0 {
 		b := center(c)
 		b.k = k
-		b.widen(c)
+		b.widen(c, b.sd)
 		would := 0
 		for i := range c.x {
 			if b.outside(c, i) {

@@ -276,7 +276,7 @@ func TestCoarseReadings(t *testing.T) {
 	// 2.81 - 2.78 is more than 0.03 in binary; half a step of slack is left.
 	c := columnOf(at(math.NaN(), 2.78, 2.78, 2.81), fit.KeyVgsth, false, 0.01)
 	b := band{mid: 2.78, sd: 0.01, k: 3}
-	b.widen(c)
+	b.widen(c, b.sd)
 	if b.outside(c, 2) {
 		t.Error("2.81 V is outside 2.78 V ± 3 × 10 mV")
 	}
