@@ -245,7 +245,7 @@ func TestGateSpan(t *testing.T) {
 	if got := flagged(s); got != "D7(off-family-gain)" {
 		t.Errorf("flagged %q, want D7 by gain", got)
 	}
-	if _, ok := s.Limits[KeySpan]; !ok || len(s.Limits) != 3 {
+	if _, ok := s.Limits[KeySpan]; !ok || len(s.Limits) != 2 {
 		t.Errorf("limits %v", s.Limits)
 	}
 	t.Log(reasons(s.Devices[6]))
