@@ -158,7 +158,7 @@ func demoCmd(env *job.Env) *cobra.Command {
 		Use: "demo", Short: "The whole job on two invented lots",
 		Long: `Makes curve files of two invented lots, imports, fits, flags, sorts and reports
 them, and leaves files, store and reports in a folder. It may be run again.`,
-		Example: "  gatesill demo\n  gatesill demo --out /tmp/look", Args: exactly(0),
+		Example: "  gatesill demo\n  gatesill demo --out look", Args: exactly(0),
 		RunE: func(cmd *cobra.Command, _ []string) error { return job.Demo(cmd.Context(), env, dir) },
 	}
 	cmd.Flags().StringVar(&dir, "out", "gatesill-demo", "`DIR` to leave everything in")

@@ -31,7 +31,7 @@ func Demo(ctx context.Context, env *Env, dir string) error {
 	if err := demoFolder(dir); err != nil {
 		return err
 	}
-	env.Store = filepath.Join(dir, "lots.db")
+	env.Store, env.JSON = filepath.Join(dir, "lots.db"), false // what it shows is for people
 	d := &demo{env: env, dir: dir, rng: rand.New(rand.NewPCG(7, 2026))}
 	for _, step := range []func(context.Context) error{d.files, d.spring, d.autumn} {
 		if err := step(ctx); err != nil {

@@ -12,11 +12,13 @@ import (
 	"os"
 	"path/filepath"
 	"slices"
+	"strconv"
 	"strings"
 	"time"
 
 	"gatesill/acquire/bench"
 	"gatesill/acquire/table"
+	"gatesill/fit"
 	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
@@ -57,23 +59,37 @@ func Import(ctx context.Context, env *Env, rq ImportRequest) error {
 		return err
 	}
 	defer im.close()
-	doc := report.ImportDoc{Lot: rq.Lot}
+	doc := report.ImportDoc{Lot: rq.Lot, Files: make([]report.ImportFile, len(rq.Files))}
 	code := ExitDone
-	for _, name := range rq.Files {
-		f, err := im.one(ctx, name)
-		if errors.Is(err, context.Canceled) {
-			return err
-		}
-		if err != nil {
+	todo := make([]int, len(rq.Files))
+	for i := range todo {
+		todo[i] = i
+	}
+	for round := 0; len(todo) > 0; round++ {
+		var later []int
+		for _, i := range todo {
+			f, err := im.one(ctx, rq.Files[i])
+			if errors.Is(err, context.Canceled) {
+				return err
+			}
 			var fatal *Failure
 			if errors.As(err, &fatal) && fatal.Code == ExitUsage {
 				return err
 			}
-			code = ExitFailed
-			f.Fate, f.Reason = report.FateRefused, reason(err)
-			tellError(env, err)
+			// A dead device tells nothing of its columns; files of the same
+			// header may.
+			if round == 0 && len(rq.Files) > 1 && errors.Is(err, table.ErrAmbiguous) {
+				later = append(later, i)
+				continue
+			}
+			if err != nil {
+				code = ExitFailed
+				f.Fate, f.Reason = report.FateRefused, reason(err)
+				tellError(env, err)
+			}
+			doc.Files[i] = f
 		}
-		doc.Files = append(doc.Files, f)
+		todo = later
 	}
 	if err := im.conclude(doc); err != nil {
 		return err
@@ -117,13 +133,14 @@ type importer struct {
 	made    bool // this import made the store
 	stored  bool // at least one file was stored
 	bench   *bench.Bench
-	session string // ID of the session
 	part    record.Part
 	seen    map[string]string // data hash -> device, over the lot and the files of this import
 	next    int               // position of the next sweep
 	same    string            // how the file before was read
 	sameAs  string            // its name
 	answers map[string]string // to questions of the reader, by their text
+
+	settled map[string]map[string]string // columns found by behaviour, by the header's signature
 }
 
 // prepare reads the bench file and looks whether store and lot are there.
@@ -136,10 +153,10 @@ func (im *importer) prepare(ctx context.Context) error {
 		im.bench = b
 		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
 		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			im.env.warn("the calibration of the %s meter %s was due on %s", m.Role, report.Clean(m.Name), m.Due)
+			im.env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
 		}
 	}
-	im.seen, im.answers = map[string]string{}, map[string]string{}
+	im.seen, im.answers, im.settled = map[string]string{}, map[string]string{}, map[string]map[string]string{}
 	im.part = record.NewPart(unnamedPart(im.rq.Lot))
 	db, err := im.env.open(ctx, false, im.rq.DryRun)
 	if errors.Is(err, store.ErrNoStore) {
@@ -252,6 +269,7 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	if err := currentless(f, sweeps); err != nil {
 		return out, err
 	}
+	im.learn(f)
 	out.Layout, out.Dialect, out.RowsRefused = f.Layout, f.Dialect, f.Refused
 	out.Sweeps = len(sweeps)
 	devices := map[string]bool{}
@@ -348,6 +366,9 @@ func (im *importer) options(ctx context.Context, name string) (table.Options, *p
 		opt.Ask = im.ask
 	}
 	opt.Remembered = func(signature string) (m map[string]string, ok bool) {
+		if m, ok := im.settled[signature]; ok {
+			return m, true
+		}
 		if im.db == nil {
 			return nil, false
 		}
@@ -409,6 +430,18 @@ func (im *importer) ofLot(f *table.File) ([]table.Sweep, map[string]int, error) 
 	}
 	delete(byLot, im.rq.Lot)
 	return out, byLot, nil
+}
+
+// learn keeps what the behaviour of one file settled for others of its header.
+func (im *importer) learn(f *table.File) {
+	for _, c := range f.Dialect.Columns {
+		if c.How == "behaviour" {
+			if im.settled[f.Dialect.Signature] == nil {
+				im.settled[f.Dialect.Signature] = map[string]string{}
+			}
+			im.settled[f.Dialect.Signature][c.As] = strconv.Itoa(c.Number)
+		}
+	}
 }
 
 // currentless refuses curves from which no current can be had: a voltage at the

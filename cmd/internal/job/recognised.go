@@ -99,7 +99,10 @@ func columnsShown(cs []table.ColumnFound) []string {
 			continue
 		}
 		text := fmt.Sprintf("%d %q: %s", c.Number, c.Header, c.As)
-		if c.Unit != "" {
+		switch {
+		case strings.HasPrefix(c.Unit, "in "): // unit in the cells
+			text += ", unit " + c.Unit
+		case c.Unit != "":
 			text += " in " + c.Unit
 		}
 		if c.How != "" && c.How != "header" {

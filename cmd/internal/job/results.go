@@ -199,6 +199,9 @@ func Export(ctx context.Context, env *Env, name, path string, points bool, o She
 
 // Backup copies the store, also while something writes to it.
 func Backup(ctx context.Context, env *Env, path string) error {
+	if path == "-" {
+		return Usage("gatesill backup FILE", "backup: a copy needs a file of its own, not stdout")
+	}
 	db, err := env.open(ctx, false, false)
 	if err != nil {
 		return err
@@ -209,6 +212,9 @@ func Backup(ctx context.Context, env *Env, path string) error {
 	p.Done()
 	if err != nil {
 		return storeFailure(err)
+	}
+	if env.JSON {
+		return report.BackupJSON(env.Out, db.Path(), path)
 	}
 	env.talk("copy of %s: %s", report.Clean(db.Path()), report.Clean(path))
 	return nil
