@@ -20,12 +20,13 @@ const (
 	nominalSupply = 0.01
 )
 
-// settleCurrents decides which current is used at every point. Where both an
-// ammeter and a load resistor tell of it, the two are compared over the whole
-// curve and then point by point: a factor of 1000 is a lost prefix, a few
-// percent is R_L, its heating or a lead; what agrees is kept, weighed so that
-// the finer reading serves at low current; the neighbours settle what
-// disagrees.
+// settleCurrents decides which current is used at every point. An ammeter and a
+// load resistor that both tell of it are compared over the whole curve first: a
+// ratio near a power of 1000 means that the meter's prefix went missing on the
+// way, one off by some percent that the resistor is not what was said. Then
+// point by point: where they agree both count, each by its own uncertainty, and
+// where they do not, the one that continues the curve through the points beside
+// it.
 func (w *work) settleCurrents() {
 	if len(w.pts) == 0 {
 		return

@@ -98,6 +98,9 @@ func Sort(ctx context.Context, env *Env, name string, o SheetOptions, rq SortReq
 func sortSheet(s *report.Sheet, opt lot.SortOptions) error {
 	sorting, err := lot.SortInto(lotDevices(s), opt)
 	if err == nil {
+		if w, ok := unlike(s); ok {
+			sorting.Warnings = append([]fit.Warning{w}, sorting.Warnings...)
+		}
 		s.Sorting = &sorting
 	}
 	return err

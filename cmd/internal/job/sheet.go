@@ -256,14 +256,14 @@ func nans(n int) []float64 {
 }
 
 // setupOf says under what a sweep was taken and what is asked of it.
-func setupOf(s *report.Sheet, sw *record.Sweep) fit.Setup {
+func setupOf(s *report.Sheet, sw *record.Sweep, digits lastDigits) fit.Setup {
 	c := sw.Condition
 	return fit.Setup{
 		Circuit: fit.Circuit(c.Circuit), PChannel: s.Part.Channel == record.PChannel, Depletion: s.Part.Mode == record.Depletion,
 		OffV: offVoltage(s.Part),
 		RL:   c.RL.Float(), RLTol: c.RLTol.Float(), Vdd: c.VDD.Float(), Vds: c.VDS.Float(), Burden: burden(sw),
 		TestCurrent: s.TestCurrent, IdleCurrent: s.IdleCurrent, MaxID: s.Part.MaxID.Float(), VgsthMax: s.Part.VgsthMax.Float(),
-		Gate: accuracy(sw, "gate", record.VG), Current: accuracy(sw, "current", record.ID), Load: accuracy(sw, "load", record.VL), Drain: accuracy(sw, "drain", record.VD),
+		Gate: accuracy(sw, "gate", record.VG, digits), Current: accuracy(sw, "current", record.ID, digits), Load: accuracy(sw, "load", record.VL, digits), Drain: accuracy(sw, "drain", record.VD, digits),
 		Spot: sw.Direction == record.Spot, Temperature: c.Temp.Float(),
 	}
 }
@@ -303,7 +303,7 @@ var divisors = map[string]float64{"limit": math.Sqrt(3), "k=2": 2, "99 %": 2.575
 
 // accuracy is what is known of the meter in a role: its statement by range, else
 // the last digit that was written down of its quantity, without a statement.
-func accuracy(sw *record.Sweep, role string, q record.Quantity) []fit.Accuracy {
+func accuracy(sw *record.Sweep, role string, q record.Quantity, digits lastDigits) []fit.Accuracy {
 	var out []fit.Accuracy
 	for _, m := range sw.Instruments {
 		if m.Role != role {
@@ -317,9 +317,34 @@ func accuracy(sw *record.Sweep, role string, q record.Quantity) []fit.Accuracy {
 			out = append(out, fit.Accuracy{Top: r.Top, Percent: r.Percent, Counts: r.Counts, Resolution: r.Resolution, Noise: r.Noise.Or(0), Divisor: div})
 		}
 	}
-	if c := sw.Column(q); len(out) == 0 && c != nil {
-		if step := c.LastDigit(); step > 0 {
-			out = append(out, fit.Accuracy{Top: math.Inf(1), Resolution: step})
+	if step := digits[digitKey{sw.SourceID, q}]; len(out) == 0 && step > 0 && sw.Column(q) != nil {
+		out = append(out, fit.Accuracy{Top: math.Inf(1), Resolution: step})
+	}
+	return out
+}
+
+// lastDigits holds the last digit in which each quantity of each source was
+// written, in SI units. It is that of the whole file: spreadsheets drop trailing
+// zeros, so that a single value may show fewer digits than its meter did.
+type lastDigits map[digitKey]float64
+
+type digitKey struct {
+	source   string
+	quantity record.Quantity
+}
+
+func lastDigitsOf(s *report.Sheet) lastDigits {
+	out := lastDigits{}
+	for i := range s.Devices {
+		for j := range s.Devices[i].Sweeps {
+			sw := &s.Devices[i].Sweeps[j].Sweep
+			for k := range sw.Columns {
+				c := &sw.Columns[k]
+				key := digitKey{sw.SourceID, c.Quantity}
+				if step := c.LastDigit(); step > 0 && (out[key] == 0 || step < out[key]) {
+					out[key] = step
+				}
+			}
 		}
 	}
 	return out
@@ -327,12 +352,13 @@ func accuracy(sw *record.Sweep, role string, q record.Quantity) []fit.Accuracy {
 
 // fitSheet fits every sweep, on all cores.
 func fitSheet(ctx context.Context, s *report.Sheet, method string) error {
+	digits := lastDigitsOf(s)
 	var wg sync.WaitGroup
 	workers := runtime.GOMAXPROCS(0)
 	for w := range workers {
 		wg.Go(func() {
 			for i := w; i < len(s.Devices) && ctx.Err() == nil; i += workers {
-				fitDevice(s, &s.Devices[i], method)
+				fitDevice(s, &s.Devices[i], method, digits)
 			}
 		})
 	}
@@ -341,7 +367,7 @@ func fitSheet(ctx context.Context, s *report.Sheet, method string) error {
 }
 
 // fitDevice fits the sweeps of one device and joins them.
-func fitDevice(s *report.Sheet, d *report.Device, method string) {
+func fitDevice(s *report.Sheet, d *report.Device, method string, digits lastDigits) {
 	var rs []fit.Result
 	var dirs []string
 	seen := map[string]bool{}
@@ -359,7 +385,7 @@ func fitDevice(s *report.Sheet, d *report.Device, method string) {
 			continue
 		}
 		seen[sw.DataHash] = true
-		setup := setupOf(s, &sw.Sweep)
+		setup := setupOf(s, &sw.Sweep, digits)
 		sw.Result = fit.One(sw.Curve, setup)
 		sw.Result.Choose(method)
 		rs = append(rs, sw.Result)
@@ -397,6 +423,9 @@ func judge(s *report.Sheet, limit float64, known *lot.Known) {
 		SortedBy: s.SortedBy, K: limit, Known: known, TestCurrent: s.TestCurrent, PChannel: s.Part.Channel == record.PChannel,
 		VgsthMin: s.Part.VgsthMin.Float(), VgsthMax: s.Part.VgsthMax.Float(),
 	})
+	if w, ok := unlike(s); ok {
+		s.Spread.Warnings = append([]fit.Warning{w}, s.Spread.Warnings...)
+	}
 }
 
 func lotDevices(s *report.Sheet) []lot.Device {
