@@ -70,6 +70,14 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	)
 	root.SetHelpCommand(helpCmd(env))
 	root.InitDefaultCompletionCmd()
+	for _, c := range root.Commands() {
+		if c.Name() == "completion" {
+			c.Args = noSuch
+			c.RunE = func(*cobra.Command, []string) error {
+				return job.Usage("gatesill completion bash", "completion: name a shell: bash, zsh, fish or powershell")
+			}
+		}
+	}
 	return root
 }
 

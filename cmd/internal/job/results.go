@@ -76,7 +76,7 @@ func Sort(ctx context.Context, env *Env, name string, o SheetOptions, rq SortReq
 	if err != nil {
 		return err
 	}
-	opt, err := sortOptions(&s, rq)
+	opt, err := sortOptions(env, &s, rq)
 	if err != nil {
 		return err
 	}
@@ -106,7 +106,7 @@ func sortSheet(s *report.Sheet, opt lot.SortOptions) error {
 	return err
 }
 
-func sortOptions(s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
+func sortOptions(env *Env, s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
 	opt := lot.SortOptions{By: s.SortedBy, Bins: rq.Bins}
 	unit := "V"
 	if rq.By != "" {
@@ -132,6 +132,9 @@ func sortOptions(s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
 		}
 		if w <= 0 {
 			return opt, Usage("--width 50mV", "--width: %s, must be above 0", rq.Width)
+		}
+		if unit == "V" && w >= 5 {
+			env.warn("bins of %s V: a bare number is in volts, 50 mV is written 50mV", report.Clean(rq.Width))
 		}
 		opt.Width = w
 	}
