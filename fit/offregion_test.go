@@ -137,10 +137,59 @@ func TestOffRegionDecidesNothing(t *testing.T) {
 					if !(math.Abs(x.Value-y.Value) <= math.Min(x.U, y.U)+1e-12) {
 						t.Errorf("%s: %s %.5g ± %.2g from 0 V, %.5g ± %.2g without", name, k, x.Value, x.U, y.Value, y.U)
 					}
-					if x.U > 1.5*y.U+1e-9 || y.U > 1.5*x.U+1e-9 {
+					// A long foot tells of the meter's noise, a short one does not: the
+					// uncertainties may differ, but not by more than three.
+					if x.U > 3*y.U+1e-9 || y.U > 3*x.U+1e-9 {
 						t.Errorf("%s: u of %s %.2g from 0 V, %.2g without", name, k, x.U, y.U)
 					}
 				}
+			}
+		}
+	}
+}
+
+// The noise put in comes out, and does not look like oscillation or faults
+// (self-made curves).
+func TestFootNoise(t *testing.T) {
+	r := randomSource(33)
+	for _, step := range []float64{0.02, 0.05} {
+		for _, noise := range []float64{20e-6, 50e-6, 200e-6} {
+			left, all := 0, 0
+			for range 20 {
+				d := simDevice{law: smoothLaw, vt: 3.3 + 0.1*r.Float64(), beta: 4.8, n: 1.4, theta: 0.05}
+				b := offBenches[r.IntN(3)]
+				c := fromOff(r, d, b, offMeter{50e-6, noise}, 0, step, 1)
+				s := b.setup()
+				s.TestCurrent, s.IdleCurrent = 10e-3, 250e-3
+				w := newWork(c, s)
+				w.settleCurrents()
+				near(t, "noise at the foot", w.footNoise(), noise, 0.6*noise)
+				q := One(c, s)
+				if q.Has(CodeOscillation) || q.State != Measured {
+					t.Errorf("%g A of noise, %g V steps: %s, codes %s", noise, step, q.State, codesOf(q))
+				}
+				left += len(q.LeftOut)
+				all += len(c.Vg)
+			}
+			t.Logf("%g A of noise, %g V steps: %d of %d points left out", noise, step, left, all)
+			if left*100 > all {
+				t.Errorf("%g A of noise, %g V steps: %d of %d points left out", noise, step, left, all)
+			}
+		}
+	}
+}
+
+// A leaky part of high threshold, whose sweep is mostly foot, is not shorted
+// (self-made).
+func TestMostlyFootIsNotShorted(t *testing.T) {
+	r := randomSource(34)
+	for _, b := range offBenches {
+		for _, offset := range []float64{100e-6, 2e-3, 8e-3} {
+			d := simDevice{law: smoothLaw, vt: 4.6, beta: 4.8, n: 1.4}
+			s := b.setup()
+			s.TestCurrent = 10e-3
+			if q := One(fromOff(r, d, b, offMeter{offset: offset}, 0, 0.02, 0.2), s); q.State != Measured {
+				t.Errorf("%s, %g A at the foot: %s: %s", b.circuit, offset, q.State, q.Why)
 			}
 		}
 	}

@@ -46,6 +46,7 @@ func (w *work) evaluate(r *Result) {
 		w.tellLeftOut()
 		return
 	}
+	w.raiseToFoot()
 	w.clean()
 	if w.falling {
 		r.State = Declined
@@ -190,6 +191,9 @@ func (w *work) tellCrossing(c crossing, i float64) (why string) {
 	switch {
 	case c.below:
 		why = "The part already carries " + amps(first.i) + " at the first point, " + volts(w.gate*first.vg) + ", more than " + amps(i) + "."
+		if all, ok := w.flat(); ok {
+			why = w.flatSentence(all)
+		}
 		w.warn(CodeBelowSweep, why)
 		return why
 	case c.never:
