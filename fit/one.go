@@ -181,7 +181,8 @@ func (w *work) crossingQuantity(c crossing, i float64) Quantity {
 	if math.IsNaN(c.v) {
 		return None()
 	}
-	return w.gateQuantity(c.v, c.u, w.relativeUsed(i)*i/c.gm, c.n)
+	u := math.Max(c.u, w.stepFloor(c.b))
+	return w.gateQuantity(c.v, u, w.relativeUsed(i)*i/c.gm, c.n)
 }
 
 // tellCrossing warns of what is wrong with a crossing and gives the sentence

@@ -22,8 +22,9 @@ const (
 	// square law between two readings may be wrong by (chosen on self-made curves,
 	// TestTwoSpotGainIsHonest).
 	spotModel = 6.0
-	// spotKnee is the overdrive, V, over which the share of the exponential fades:
-	// 2 n kT/q with n = 1.7.
+	// spotKnee is the overdrive, V, over which a smooth knee fades into the square
+	// law: 2 n kT/q with n = 1.7, by the interpolation of Enz, Krummenacher and
+	// Vittoz, Analog Integr. Circuits Signal Process. 8 (1995) 83–114 (from memory).
 	spotKnee = 2 * 1.7 * thermalVoltage
 )
 
@@ -184,9 +185,8 @@ func (w *work) spotGainError(p *point, i float64) float64 {
 // through both. The chord (I₂-I₁)/(V₂-V₁) is that slope at one current between
 // them only and a third too small at the upper of two that are ten times apart.
 // The uncertainty holds a spotModel-th of the distance between the two at either
-// reading, (√I₂-√I₁)²/(V₂-V₁), for mobility and series resistance, and the
-// distance to the exponential's slope I ln(I₂/I₁)/(V₂-V₁), weighted by how near
-// the lower reading lies to the knee.
+// reading, (√I₂-√I₁)²/(V₂-V₁), for mobility and series resistance, and what
+// a smooth knee moves and bends at these overdrives.
 //
 // Source: square law, H. Shichman and D. A. Hodges, IEEE J. Solid-State Circuits
 // SC-3 (1968) 285–289. Checked: TestTwoSpots, TestTwoSpotGainIsHonest.
@@ -224,10 +224,10 @@ func (w *work) spotGain(r *Result) {
 	root := func(p *point) float64 { return math.Sqrt(i/math.Max(p.i, p.u)) * p.u }
 	u := rss(g*rss(w.spotU(a), w.spotU(b))/d, rss(root(a), root(b))/d)
 	u = rss(u, rise*rise/d/spotModel)
-	if a.i > 0 {
-		over := math.Sqrt(a.i) * d / rise // V, of the lower reading by the square law
-		u = rss(u, (i*math.Log(b.i/a.i)/d-g)*math.Exp(-over/spotKnee))
-	}
+	// Shares of the knee: the lower reading lies below the square law, and the
+	// slope at i is smaller than its own.
+	fade := func(i float64) float64 { return math.Exp(-math.Sqrt(math.Max(i, 0)) * d / rise / spotKnee) }
+	u = rss(u, g*rss(spotKnee*(fade(a.i)-fade(b.i))/d, fade(i)))
 	r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: 2}, i, 1, 1)
 	w.warn(CodeSpotOnly, "Transconductance is from the two spots at "+amps(a.i)+" and "+amps(b.i)+", as of a square law through both.")
 }

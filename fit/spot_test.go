@@ -184,8 +184,9 @@ func TestDeadSpots(t *testing.T) {
 func TestTwoSpotGainIsHonest(t *testing.T) {
 	r := randomSource(51)
 	var upper, middle, lower honesty
+	const devices = 243
 	sum := 0.0
-	for k := range 600 {
+	for k := range devices {
 		d := simDevice{
 			law: smoothLaw, vt: 2 + 2*r.Float64(), beta: 1 + 6*r.Float64(), n: 1.1 + 0.7*r.Float64(),
 			theta: 0.15 * r.Float64(), rs: 0.05 * r.Float64(),
@@ -216,7 +217,7 @@ func TestTwoSpotGainIsHonest(t *testing.T) {
 			t.Errorf("%s: %.1f %% within 2u", x.what, 100*w)
 		}
 	}
-	if mean := sum / 600; mean > 0.12 {
+	if mean := sum / devices; mean > 0.12 {
 		t.Errorf("mean error at the upper current %.1f %%", 100*mean)
 	}
 }
