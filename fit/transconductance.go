@@ -275,16 +275,19 @@ func (s *slopePoints) leaning(p *poly, o ordinate, j, m int, x, back float64) fl
 //
 // g_m = dI_D/dV_GS by local polynomials over seven points, more where steps are
 // fine against the noise (non-uniform steps allowed), in I, √I or ln I by
-// region: parabolas for the greatest slope, cubics at the idle current, where
-// the window grows while the slopes agree. Points
-// nearer than three times the gate uncertainty are merged; the points at either
-// end, where the window is one-sided, are no candidates for the maximum, nor are points with more than
-// half of V_DD across R_L. In the load circuit it is the slope of the circuit,
+// region: parabolas find the place of the greatest slope; its value, and the slope
+// at the idle current, are those of cubics whose window grows while the slopes
+// agree. Points nearer than three times the gate uncertainty are merged; that is
+// taken where the current is, for below threshold the voltage scatter is only the
+// meter's last digits over a slope of nothing. The points at either end, where the
+// window is one-sided, are no candidates for the maximum, nor are points with more
+// than half of V_DD across R_L. In the load circuit it is the slope of the circuit,
 // dI/dV_G, which falls below g_m where the drain voltage collapses.
 //
 // Source: A. Savitzky and M. J. E. Golay, Anal. Chem. 36 (1964) 1627–1639, for
 // non-uniform steps W. S. Cleveland, J. Am. Stat. Assoc. 74 (1979) 829–836 (both
-// from memory). Checked: TestSavitzkyGolay, TestTransconductance.
+// from memory). Checked: TestSavitzkyGolay, TestTransconductance,
+// TestTransconductanceFromFarBelow.
 func (w *work) transconductances(r *Result, idle crossing) {
 	n := len(w.pts)
 	if n < 3 {
