@@ -27,7 +27,9 @@ type Curve struct {
 
 // Accuracy is what is known of one meter on one range:
 // ±(Percent of the reading + Counts × Resolution). The zero value is a meter
-// of which nothing is known.
+// of which nothing is known. Percent and Counts both 0 with a Resolution: the
+// step of the display is known and counts as random part, an accuracy statement
+// is not and there is no absolute uncertainty.
 type Accuracy struct {
 	Top        float64 // greatest reading of the range, SI unit; +Inf: one range only
 	Percent    float64 // of the reading, in percent: 0.5 is 0.5 %

@@ -83,18 +83,55 @@ func (w *work) forSlopes(e float64) slopePoints {
 		j = k
 	}
 	s.degree = 2
-	s.m, s.least = s.width(e, slopeNoise, slopeWindow), s.width(e, firstNoise, slopeLeast)
+	h := s.stepWhereOn()
+	s.m, s.least = s.width(e, h, slopeNoise, slopeWindow), s.width(e, h, firstNoise, slopeLeast)
 	return s
+}
+
+// stepWhereOn is the mean step, V, of the points that carry current: how long or
+// how fine the sweep was in the off region says nothing of a slope.
+func (s *slopePoints) stepWhereOn() float64 {
+	n := len(s.x)
+	top := 0.0
+	for _, i := range s.i {
+		top = math.Max(top, i)
+	}
+	from := 0
+	for from < n-1 && s.i[from] < top/scatterRatio {
+		from++
+	}
+	if n-from < 3 { // the rise is within the last steps
+		from = max(0, n-3)
+	}
+	return (s.x[n-1] - s.x[from]) / float64(n-1-from)
+}
+
+// whereOn is the first point with two fifths of the greatest current, as far as
+// the current is not the resistor's doing: there the voltage scatter is that of
+// the gate and not of the meter's last digits. A square-law sweep from just
+// below threshold has that at two thirds of its points.
+func (w *work) whereOn() int {
+	top := 0.0
+	for j := range w.pts {
+		if !w.nearlyThrough(w.pts[j].i, j) {
+			top = math.Max(top, w.pts[j].i)
+		}
+	}
+	for j := range w.pts {
+		if w.pts[j].i >= 0.4*top {
+			return j
+		}
+	}
+	return len(w.pts) - 1
 }
 
 // width is the number of points of a window: m, more where steps are fine
 // against the scatter e for a slope of that relative noise, fewer where there
 // are no more. The slope over m points a step h apart scatters by
 // e √12 / (h m^1.5), relative to the slope itself.
-func (s *slopePoints) width(e, noise float64, m int) int {
+func (s *slopePoints) width(e, h, noise float64, m int) int {
 	n := len(s.x)
 	if n > 1 && e > 0 {
-		h := (s.x[n-1] - s.x[0]) / float64(n-1)
 		if need := math.Pow(e*math.Sqrt(12)/(noise*h), 2./3); need < slopeWindowMax {
 			m = max(m, int(need))
 		} else {
@@ -238,23 +275,25 @@ func (s *slopePoints) leaning(p *poly, o ordinate, j, m int, x, back float64) fl
 //
 // g_m = dI_D/dV_GS by local polynomials over seven points, more where steps are
 // fine against the noise (non-uniform steps allowed), in I, √I or ln I by
-// region: parabolas for the greatest slope, cubics at the idle current, where
-// the window grows while the slopes agree. Points
-// nearer than three times the gate uncertainty are merged; the points at either
-// end, where the window is one-sided, are no candidates for the maximum, nor are points with more than
-// half of V_DD across R_L. In the load circuit it is the slope of the circuit,
+// region: parabolas find the place of the greatest slope; its value, and the slope
+// at the idle current, are those of cubics whose window grows while the slopes
+// agree. Points nearer than three times the gate uncertainty are merged; that is
+// taken where the current is, for below threshold the voltage scatter is only the
+// meter's last digits over a slope of nothing. The points at either end, where the
+// window is one-sided, are no candidates for the maximum, nor are points with more
+// than half of V_DD across R_L. In the load circuit it is the slope of the circuit,
 // dI/dV_G, which falls below g_m where the drain voltage collapses.
 //
 // Source: A. Savitzky and M. J. E. Golay, Anal. Chem. 36 (1964) 1627–1639, for
 // non-uniform steps W. S. Cleveland, J. Am. Stat. Assoc. 74 (1979) 829–836 (both
-// from memory). Checked: TestSavitzkyGolay, TestTransconductance.
+// from memory). Checked: TestSavitzkyGolay, TestTransconductance,
+// TestTransconductanceFromFarBelow.
 func (w *work) transconductances(r *Result, idle crossing) {
 	n := len(w.pts)
 	if n < 3 {
 		return
 	}
-	e := w.scatterNear(n * 2 / 3)
-	s := w.forSlopes(e)
+	s := w.forSlopes(w.scatterNear(w.whereOn()))
 	n = len(s.x)
 	if n < 3 {
 		return
@@ -274,7 +313,8 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		o := w.ordinateAt(&s, at)
 		_, back := s.slopeAt(&w.poly, o, at, width, s.x[at])
 		chance := s.slopeScatter(&w.poly, o, at, width, s.x[at], back)
-		g, u, used := s.widen(&w.poly, o, at, width, s.x[at])
+		s.degree = 3 // few points hold the whole bend of a knee at coarse steps
+		g, u, used := s.widen(&w.poly, o, at, min(width, s.least), s.x[at])
 		// The greatest of many is great by chance as well: the scatter of one of
 		// them is left in.
 		u = rss(u, chance)

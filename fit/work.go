@@ -116,13 +116,14 @@ func (w *work) orient() {
 		w.gate = 1 // V_SG was written down
 	}
 	w.current, w.load, w.drain = w.sign, w.sign, w.sign
+	magnitudes := w.gate != w.sign // then those of the current say nothing of its direction
 	if w.sign*greatest(w.c.Id) < 0 {
 		w.current = -w.sign
-		w.turned = true
+		w.turned = !magnitudes
 	}
 	if w.sign*greatest(w.c.Vl) < 0 {
 		w.load = -w.sign
-		w.turned = w.turned || w.c.Id == nil
+		w.turned = w.turned || w.c.Id == nil && !magnitudes
 	}
 	if w.sign*greatest(w.c.Vd) < 0 {
 		w.drain = -w.sign
