@@ -8,6 +8,8 @@ import (
 const (
 	// deadShare of the test current, and five counts, is no current at all.
 	deadShare = 0.01
+	// manyCounts of the meter are a current, whatever the test current.
+	manyCounts = 50
 	// wellUp is how far above its off voltage, V, the gate of an enhancement part
 	// must have been for 'no current' to mean 'open': data sheets of power and RF
 	// parts end at 4 to 5 V.
@@ -213,7 +215,8 @@ func (w *work) medianDrain(from, to int) float64 {
 }
 
 // nothingFlows reports whether no two points show a current: one may be a
-// spike.
+// spike. A hundredth of the test current is none, unless that is a current of
+// many counts: who asks for kiloamperes has no open part for that.
 func (w *work) nothingFlows() bool {
 	limit := 0.0
 	if positive(w.s.TestCurrent) {
@@ -222,7 +225,7 @@ func (w *work) nothingFlows() bool {
 	seen := 0
 	for j := range w.pts {
 		p := &w.pts[j]
-		if math.Abs(p.i) > math.Max(limit, 5*p.q) {
+		if i := math.Abs(p.i); i > math.Max(limit, 5*p.q) || p.q > 0 && i > manyCounts*p.q {
 			seen++
 		}
 	}
