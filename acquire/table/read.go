@@ -51,6 +51,8 @@ type reader struct {
 	cols       []column
 	num        numeral
 	layout     string
+	summaries  []remarkLine // refused rows whose device cell is a summary word, with it
+	footer     int          // refused rows that are the foot of a spreadsheet
 
 	talk       []remarkLine // comments and what stands above the header
 	talkCond   record.Condition

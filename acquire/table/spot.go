@@ -136,6 +136,7 @@ func (s *spotReader) row() *builder {
 		return nil
 	}
 	s.currents(b)
+	b.states = s.r.file.States - states
 	b.lines = []record.Lines{}
 	for i := range s.points {
 		b.lines = append(b.lines, record.Lines{Point: i, Line: s.w.at, Count: 1})
