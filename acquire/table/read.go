@@ -52,6 +52,7 @@ type reader struct {
 	num        numeral
 	layout     string
 	summaries  []remarkLine // refused rows whose device cell is a summary word, with it
+	numbered   bool         // devices are numbered by their rows
 	footer     int          // refused rows that are the foot of a spreadsheet
 
 	talk       []remarkLine // comments and what stands above the header
