@@ -55,10 +55,12 @@ type reader struct {
 	numbered   bool         // devices are numbered by their rows
 	footer     int          // refused rows that are the foot of a spreadsheet
 
-	talk       []remarkLine // comments and what stands above the header
-	talkCond   record.Condition
-	talkText   map[Role]string // operator, fixture, date as comments say
-	talkDevice string          // the device of a file without device column
+	talk        []remarkLine // comments and what stands above the header
+	talkCond    record.Condition
+	talkText    map[Role]string // operator, fixture, date as comments say
+	talkChannel string          // "p", "n" as comments say
+	unread      []remarkLine    // conditions in comments that cannot be read
+	talkDevice  string          // the device of a file without device column
 }
 
 // remarkLine is a comment with its line.
