@@ -76,7 +76,11 @@ func (s said) numeric() bool {
 // beforeNumber finds an equals sign or colon with a number behind it.
 var beforeNumber = regexp.MustCompile(`\s*[:=]\s*[~≈]?[+-]?[0-9]`)
 
-const maxKeyWords = 4
+const (
+	maxKeyWords = 4
+	maxKey      = 60 // bytes of a key, as keyValue takes them
+	maxPairs    = 20 // of one text
+)
 
 // pairs cuts a text where a condition with its number begins, though nothing
 // stands between it and what is before: RL=10R VDD=12.05V. What is no such
@@ -84,7 +88,7 @@ const maxKeyWords = 4
 func pairs(text string) []string {
 	var list []string
 	lo := 0
-	for _, m := range beforeNumber.FindAllStringIndex(text, -1) {
+	for _, m := range beforeNumber.FindAllStringIndex(text, maxPairs) {
 		if at := keyStart(text[lo:m[0]]); at > 0 {
 			list = append(list, strings.TrimSpace(text[lo:lo+at]))
 			lo += at
@@ -97,7 +101,7 @@ func pairs(text string) []string {
 // text is one or none is known. The shortest known key counts, made longer by
 // words that leave its meaning: in "12 V T" it is T and not V T, a threshold.
 func keyStart(text string) int {
-	if keyOf(text).numeric() {
+	if len(text) <= maxKey && keyOf(text).numeric() {
 		return 0
 	}
 	at, kind := 0, ""
@@ -109,6 +113,9 @@ func keyStart(text string) int {
 		}
 		end = i
 		tail := strings.TrimSpace(text[i:])
+		if len(tail) > maxKey {
+			break
+		}
 		if c := []rune(tail + " ")[0]; !unicode.IsLetter(c) && c != '(' && c != '[' {
 			break // no word of a key: 10, ±1, %
 		}

@@ -4,6 +4,7 @@ import (
 	"slices"
 	"strings"
 	"testing"
+	"time"
 
 	"gatesill/store/record"
 )
@@ -65,6 +66,18 @@ func TestConditionsThatCannotBeReadAreTold(t *testing.T) {
 	f := mustRead(t, "x.csv", "# VDD = 12 V\n# a note on nothing\n# operator: Ada\n"+talkBody, Options{})
 	if hasNote(f, "cannot be read") {
 		t.Errorf("%q", f.Dialect.Notes)
+	}
+}
+
+// Comments made to cost time cost little of it.
+func TestManyConditionsInManyComments(t *testing.T) {
+	for _, piece := range []string{"a=1 ", "T =1", "VDD=1 ", "p-channel ", "p n ", "=1", "T T T T=1 "} {
+		text := strings.Repeat("#"+strings.Repeat(piece, maxTalk/len(piece))+"\n", maxTalkLines/10) + talkBody
+		start := time.Now()
+		mustRead(t, "x.csv", text, Options{})
+		if d := time.Since(start); d > 3*time.Second {
+			t.Errorf("%q took %v", piece, d)
+		}
 	}
 }
 
