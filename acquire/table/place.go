@@ -57,6 +57,9 @@ func (r *reader) placeColumns(claimed map[string]bool) error {
 	case len(r.cols) == 1:
 		hint = "--map vg=1 --spot-current 10mA"
 	}
+	if len(r.cols) == 1 {
+		return r.ambiguous(0, hint, "the file has no header, and its one column does not tell what it is")
+	}
 	return r.ambiguous(0, hint, "the file has no header, and its %d columns do not tell what they are", len(r.cols))
 }
 
