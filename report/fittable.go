@@ -70,7 +70,7 @@ func fitGrid(s Sheet, style Style) grid {
 			methods[i] = Clean(d.Result.Method)
 		}
 		var own []string
-		for _, w := range d.Result.Warnings {
+		for _, w := range beyondState(d) {
 			if !slices.Contains(common, w.Code) && !slices.Contains(own, w.Code) {
 				own = append(own, w.Code)
 			}
@@ -121,39 +121,6 @@ func stateCell(d *Device, style Style) string {
 	return style.paint(word, red)
 }
 
-// notMeasured says for every device without a value why it has none.
-func notMeasured(p *printer, s Sheet, style Style) {
-	type group struct {
-		state fit.State
-		lines []string
-	}
-	var groups []group
-	for _, state := range []fit.State{fit.Above, fit.Open, fit.Shorted, fit.WrongWayRound, fit.Declined, fit.Excluded, ""} {
-		g := group{state: state}
-		for _, d := range s.Devices {
-			if d.State() == state {
-				g.lines = append(g.lines, fmt.Sprintf("%s: %s", Clean(d.Name), Clean(Sentence(d.Reason()))))
-			}
-		}
-		if len(g.lines) > 0 {
-			groups = append(groups, g)
-		}
-	}
-	if len(groups) == 0 {
-		return
-	}
-	p.line("")
-	p.line("%s", style.paint("Without a value", bold))
-	for _, g := range groups {
-		for _, l := range g.lines {
-			wrapped(p, "  ", "    ", l, style.Width)
-		}
-		if next := WordsOf(g.state).Next; next != "" {
-			wrapped(p, "    next: ", "    ", next, style.Width)
-		}
-	}
-}
-
 // commonCodes lists the warning codes that every measured device carries: they
 // are said once.
 func commonCodes(s Sheet) []string {
@@ -199,12 +166,16 @@ type RemarkGroup struct {
 // RemarkGroups gathers the warnings of the devices by code, in order of the
 // code.
 func (s *Sheet) RemarkGroups() []RemarkGroup {
+	return s.remarkGroups(func(d *Device) []fit.Warning { return d.Result.Warnings })
+}
+
+func (s *Sheet) remarkGroups(warnings func(*Device) []fit.Warning) []RemarkGroup {
 	byCode := map[string]*RemarkGroup{}
 	texts := map[string]string{}
 	common := commonCodes(*s)
 	for i := range s.Devices {
 		d := &s.Devices[i]
-		for _, w := range d.Result.Warnings {
+		for _, w := range warnings(d) {
 			g := byCode[w.Code]
 			if g == nil {
 				advice := s.Advice(w.Code)
@@ -230,8 +201,10 @@ func (s *Sheet) RemarkGroups() []RemarkGroup {
 	return list
 }
 
+// remarks follow the reasons of devices without a value: they do not say those
+// again.
 func remarks(p *printer, s Sheet, style Style) {
-	groups := s.RemarkGroups()
+	groups := s.remarkGroups(beyondState)
 	if len(groups) == 0 {
 		return
 	}

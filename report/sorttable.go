@@ -43,8 +43,8 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	if left := s.Unsorted(); len(left) > 0 {
 		p.line("")
 		p.line("%s", style.paint(fmt.Sprintf("In no bin: %d", len(left)), bold))
-		for _, u := range left {
-			wrapped(p, "  ", "    ", Clean(u.Name)+": "+Clean(Sentence(u.Why)), style.Width)
+		for _, g := range groupNames(left) {
+			wrapped(p, "  ", "    ", namesWords(g.names, shownNames)+": "+Clean(Sentence(g.text)), style.Width)
 		}
 	}
 	return p.err

@@ -144,15 +144,21 @@ func TestHostileNamesOnTheTerminal(t *testing.T) {
 	}
 }
 
-// A number that could not be had is n/a, or above, and the reason stands below.
+// A number that could not be had is n/a, or above, and state and reason stand
+// below, whether or not other devices of the lot have a value.
 func TestWhatCouldNotBeHadHasItsReason(t *testing.T) {
 	s := invented.Lot(invented.Options{Devices: 20, Points: 30, Seed: 1})
-	text := show(t, report.FitTable, s, report.Style{})
+	text, spread := show(t, report.FitTable, s, report.Style{}), show(t, report.SpreadTable, s, report.Style{})
 	for _, d := range s.Devices {
 		if d.State() == fit.Measured {
 			continue
 		}
-		require.Contains(t, text, "  "+d.Name+": "+report.Sentence(d.Reason()), "no reason for %s", d.State())
+		who := d.Name + " (" + report.WordsOf(d.State()).Word + "): "
+		if d.State() == fit.Excluded {
+			who = d.Name + ": "
+		}
+		require.Contains(t, text, "  "+who+report.Sentence(d.Reason()), "no reason for %s", d.State())
+		require.Contains(t, spread, "  "+who+report.Sentence(d.Reason()), "no reason for %s beside the spread", d.State())
 		if d.State() == fit.Above {
 			require.Regexp(t, `(?m)^`+d.Name+` +above +above`, text)
 		}
