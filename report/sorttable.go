@@ -32,6 +32,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "", "How narrow a bin may be is not known: no uncertainty of the readings is known.", style.Width)
 	}
 	lotWarnings(p, s, srt.Warnings, style)
+	doubts(p, s, style)
 	p.line("")
 	if g := placedGrid(srt, style); len(g.cols[0].cells) > 0 {
 		p.grid(g)

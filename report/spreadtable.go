@@ -51,6 +51,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	}
 	lotWarnings(p, s, warnings, style)
 	flags(p, s, style)
+	doubts(p, s, style)
 	notMeasured(p, s, style)
 	return p.err
 }

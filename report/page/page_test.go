@@ -319,3 +319,12 @@ func BenchmarkPage5000(b *testing.B) {
 	}
 	b.ReportMetric(float64(buf.Len()), "bytes")
 }
+
+// The page names the devices whose sweeps disagree, with what was found.
+func TestSweepsThatDisagreeAreNamed(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 20, Points: 10, Seed: 1})
+	require.NotContains(t, words(write(t, s)), "Sweeps disagree")
+	r := &s.Devices[2].Result
+	r.Warnings = append(r.Warnings, fit.Warning{Code: fit.CodeSweepsDisagree, Text: "V_GS(th) of its sweeps differs by 60 mV"})
+	require.Regexp(t, `Sweeps disagree .*D03 : V_GS\(th\) of its sweeps differs by 60 mV\. \(sweeps-disagree\)`, words(write(t, s)))
+}

@@ -127,6 +127,13 @@ func (v *view) flags(k *known) {
 		}
 		v.Flags = append(v.Flags, n)
 	}
+	for _, d := range k.Doubts() {
+		n := named{Name: report.Clean(d.Name)}
+		for _, text := range d.Texts {
+			n.Texts = append(n.Texts, rich(text))
+		}
+		v.Doubts = append(v.Doubts, n)
+	}
 	v.FlagCount = fmt.Sprintf("%s of %d", none(len(v.Flags)), len(k.Spread.Devices))
 }
 

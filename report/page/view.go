@@ -35,6 +35,7 @@ type view struct {
 	Devices    deviceTable
 	Flags      []named
 	FlagCount  string
+	Doubts     []named // devices whose sweeps disagree
 	LeftOut    *table
 	Remarks    []remark
 	Conditions *table
