@@ -119,11 +119,11 @@ func binGrid(srt *lot.Sorting, style Style) grid {
 	sc := BinScale(srt)
 	unit := sc.Unit(KeyOf(srt.By).Unit)
 	var names, lows, highs, counts []string
-	for _, b := range srt.Bins {
+	for _, b := range BinRows(srt) {
 		names = append(names, Clean(b.Name))
 		lows = append(lows, EdgeText(srt, sc, b.Low))
 		highs = append(highs, EdgeText(srt, sc, b.High))
-		counts = append(counts, itoa(len(b.Devices)))
+		counts = append(counts, b.Count())
 	}
 	return grid{style: style, cols: []column{
 		{head: "bin", cells: names}, {head: "from", unit: unit, cells: lows, right: true},

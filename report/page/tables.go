@@ -35,11 +35,12 @@ func (v *view) spread(k *known) {
 		if !ok || m.N == 0 && m.Above == 0 {
 			continue
 		}
-		sc, se := report.SummaryScale(key, m), report.StandardError(m)
-		num := func(x float64) cell { return number(sc.FormatNumber(x, se, 0)) }
+		sc, se, step := report.SummaryScale(key, m), report.StandardError(m), report.SummaryDigits(m)
+		num := func(x float64) cell { return number(sc.FormatNumber(x, step, 0)) }
+		plain := func(x float64) cell { return number(sc.FormatNumber(x, se, 0)) }
 		t.Rows = append(t.Rows, []cell{
 			{Text: rich(k.KeyPhrase(key)), Head: true}, text(sc.Unit(report.KeyOf(key).Unit)), number(strconv.Itoa(m.N)), number(strconv.Itoa(m.Above)),
-			num(m.Median), num(m.RobustSD), num(m.Mean), number(sc.FormatNumber(se, se, 0)), num(m.SD), num(m.Min), num(m.Max),
+			num(m.Median), num(m.RobustSD), plain(m.Mean), plain(se), plain(m.SD), num(m.Min), num(m.Max),
 		})
 	}
 	if len(t.Rows) > 0 {
@@ -83,7 +84,7 @@ func (v *view) bins(k *known) {
 	sc := report.BinScale(srt)
 	unit := sc.Unit(report.KeyOf(srt.By).Unit)
 	t := &table{Caption: richf("Bins by %s", k.KeyPhrase(srt.By)), Heads: []head{{"bin", false}, {richf("from (%s)", unit), true}, {richf("below (%s)", unit), true}, {"devices", true}, {"which", false}}}
-	for _, b := range srt.Bins {
+	for _, b := range report.BinRows(srt) {
 		var names []string
 		for _, d := range b.Devices {
 			name := report.Clean(d.Name)
@@ -96,7 +97,7 @@ func (v *view) bins(k *known) {
 		if len(names) == 0 {
 			list = cell{Text: "none", None: true}
 		}
-		t.Rows = append(t.Rows, []cell{nameCell(b.Name), number(report.EdgeText(srt, sc, b.Low)), number(report.EdgeText(srt, sc, b.High)), number(strconv.Itoa(len(b.Devices))), list})
+		t.Rows = append(t.Rows, []cell{nameCell(b.Name), number(report.EdgeText(srt, sc, b.Low)), number(report.EdgeText(srt, sc, b.High)), number(b.Count()), list})
 	}
 	note := "How narrow a bin may be is not known, because no uncertainty of the readings is known."
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {

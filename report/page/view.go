@@ -237,8 +237,8 @@ func (v *view) summary(k *known) {
 	v.Lead = append(v.Lead, richf("Lot %s%s: %s known, %d with a value, %s flagged.", k.Sheet.Lot.Name, part, plural(c.Devices, "device"), c.Measured, none(c.Flagged)))
 	v.Lead = append(v.Lead, rich(k.SortedPhrase(k.by)))
 	if has && m.N > 0 {
-		sc, se := report.SummaryScale(k.by, m), report.StandardError(m)
-		num := func(x float64) string { return sc.FormatNumber(x, se, 0) + " " + sc.Unit(unit) }
+		sc, step := report.SummaryScale(k.by, m), report.SummaryDigits(m)
+		num := func(x float64) string { return sc.FormatNumber(x, step, 0) + " " + sc.Unit(unit) }
 		text := fmt.Sprintf("The median is %s", num(m.Median))
 		if !math.IsNaN(m.RobustSD) {
 			text += fmt.Sprintf(" with a robust standard deviation of %s", report.FormatTwoDigits(m.RobustSD, unit))
