@@ -226,16 +226,6 @@ func remarks(p *printer, s Sheet, style Style) {
 	}
 }
 
-// warnings writes warnings of the lot as a whole.
-func lotWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
-	for _, w := range list {
-		wrapped(p, "", "  ", fmt.Sprintf("%s (%s)", Clean(Sentence(w.Text)), Clean(w.Code)), style.Width)
-		if next := s.Advice(w.Code).Next; next != "" {
-			wrapped(p, "  next: ", "  ", Clean(next), style.Width)
-		}
-	}
-}
-
 // wrapped writes words in lines of at most width columns (0: one line), the
 // first behind first, the others behind rest.
 func wrapped(p *printer, first, rest, words string, width int) {

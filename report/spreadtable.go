@@ -203,7 +203,7 @@ func flags(p *printer, s Sheet, style Style) {
 		}
 		name := Clean(v.Name)
 		for _, r := range v.Reasons {
-			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(Sentence(r.Text)), Clean(r.Code)), style.Width)
+			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(s.ReasonText(r)), Clean(r.Code)), style.Width)
 		}
 		if len(v.Reasons) == 0 {
 			p.line("  %s", style.paint(name, red))

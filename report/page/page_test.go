@@ -328,3 +328,20 @@ func TestSweepsThatDisagreeAreNamed(t *testing.T) {
 	r.Warnings = append(r.Warnings, fit.Warning{Code: fit.CodeSweepsDisagree, Text: "V_GS(th) of its sweeps differs by 60 mV"})
 	require.Regexp(t, `Sweeps disagree .*D03 : V_GS\(th\) of its sweeps differs by 60 mV\. \(sweeps-disagree\)`, words(write(t, s)))
 }
+
+// A sentence that begins with the two populations is not headed by them again,
+// and several quantities with too few devices are one note.
+func TestNotesAreSaidOnce(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 20, Points: 10, Seed: 1})
+	s.Spread.Populations, s.Spread.Split = 2, &lot.Split{By: fit.KeyVgsth, GapLow: 2.5, GapHigh: 3, Low: []string{"C1"}, High: []string{"C2"}, Text: "two populations by V_GS(th): 1 and 1"}
+	s.Spread.Warnings = []fit.Warning{{Code: fit.CodeTwoPopulations, Text: s.Spread.Split.Text}, {Code: fit.CodeTwoPopulations, Text: "neither group is the odd one"}}
+	for _, name := range []string{"V_GS(th)", "gain factor"} {
+		s.Spread.Warnings = append(s.Spread.Warnings, fit.Warning{Code: fit.CodeNTooSmall, Text: "too few to judge one another by " + name + ": 6 devices have a value"})
+	}
+	text := words(write(t, s))
+	require.Contains(t, text, "Note. Two populations by V_GS(th): 1 and 1.")
+	require.NotContains(t, text, "Two populations. Two populations")
+	require.Contains(t, text, "Note. Neither group is the odd one.")
+	require.Contains(t, text, "Note. Too few to judge one another by V_GS(th) and gain factor: 6 devices have a value.")
+	require.Equal(t, 1, strings.Count(text, "Too few to judge"))
+}

@@ -117,8 +117,10 @@ func (v *view) flags(k *known) {
 		}
 		n := named{Name: report.Clean(vd.Name)}
 		for _, r := range vd.Reasons {
-			text := rich(report.Sentence(r.Text))
-			if next := k.Advice(r.Code).Next; next != "" {
+			text := rich(k.ReasonText(r))
+			if r.Code == fit.CodeTwoPopulations && k.Spread.Split != nil {
+				// The advice stands with the groups.
+			} else if next := k.Advice(r.Code).Next; next != "" {
 				text += " " + rich(next)
 			} else if next := stateNext(r.Code); next != "" {
 				text += " " + rich(next)

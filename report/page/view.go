@@ -277,7 +277,11 @@ func (v *view) summary(k *known) {
 
 func (v *view) alerts(k *known) {
 	if sp := k.Spread.Split; sp != nil {
-		v.Alerts = append(v.Alerts, alert{Text: rich("Two populations. " + report.Sentence(sp.Text)), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
+		text := report.Sentence(sp.Text)
+		if !strings.HasPrefix(text, "Two populations") {
+			text = "Two populations. " + text
+		}
+		v.Alerts = append(v.Alerts, alert{Text: rich(text), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
 	}
 	warnings := slices.Clone(k.Spread.Warnings)
 	if k.Sorting != nil {
@@ -287,11 +291,15 @@ func (v *view) alerts(k *known) {
 			}
 		}
 	}
-	for _, w := range warnings {
+	if sp := k.Spread.Split; sp != nil {
+		warnings = slices.DeleteFunc(warnings, func(w fit.Warning) bool { return w.Text == sp.Text })
+	}
+	for _, w := range report.JoinWarnings(warnings) {
+		a := alert{Text: rich(report.Sentence(w.Text)), Next: rich(k.Advice(w.Code).Next)}
 		if w.Code == fit.CodeTwoPopulations && k.Spread.Split != nil {
-			continue
+			a.Next = "" // stands with the groups
 		}
-		v.Alerts = append(v.Alerts, alert{Text: rich(report.Sentence(w.Text)), Next: rich(k.Advice(w.Code).Next)})
+		v.Alerts = append(v.Alerts, a)
 	}
 	for _, m := range instruments(k.Sheet) {
 		if m.overdue != "" {
