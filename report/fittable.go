@@ -48,6 +48,12 @@ func FitTable(w io.Writer, s Sheet, style Style) error {
 	dropped := p.grid(fitGrid(s, style))
 	p.line("")
 	wrapped(p, "", "  ", "± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.", style.Width)
+	leakage := KeyOf(fit.KeyIdss).Symbol
+	if i := slices.Index(dropped, leakage); i >= 0 {
+		dropped[i] = SymbolWords(fit.KeyIdss)
+	} else if slices.ContainsFunc(s.Devices, func(d Device) bool { return d.Result.Idss.Ok() }) {
+		wrapped(p, "", "  ", LeakageNote, style.Width)
+	}
 	if len(dropped) > 0 {
 		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}

@@ -125,7 +125,7 @@ var symbols = strings.NewReplacer(
 	"V_GS(th)", "V<sub>GS(th)</sub>", "V_GS(idle)", "V<sub>GS(idle)</sub>", "V_GS", "V<sub>GS</sub>",
 	"V_DS", "V<sub>DS</sub>", "V_DD", "V<sub>DD</sub>", "V_T", "V<sub>T</sub>",
 	"g_m(idle)", "g<sub>m(idle)</sub>", "g_m(max)", "g<sub>m(max)</sub>", "g_m", "g<sub>m</sub>",
-	"I_DSS", "I<sub>DSS</sub>", "I_D", "I<sub>D</sub>", "R_L", "R<sub>L</sub>", "P_D", "P<sub>D</sub>", "R_th", "R<sub>th</sub>",
+	"I_D(off)", "I<sub>D(off)</sub>", "I_D", "I<sub>D</sub>", "R_L", "R<sub>L</sub>", "P_D", "P<sub>D</sub>", "R_th", "R<sub>th</sub>",
 )
 
 var beforeUnit = regexp.MustCompile(`([0-9)]) ((?:[fpnµmkMG]?(?:V|A|S|Ω|W|s|A/V²)|1/V|K/W|°C|%)\b|%|°C)`)
