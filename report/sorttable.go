@@ -44,8 +44,8 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	if left := s.Unsorted(); len(left) > 0 {
 		p.line("")
 		p.line("%s", style.paint(fmt.Sprintf("In no bin: %d", len(left)), bold))
-		for _, g := range groupNames(left) {
-			wrapped(p, "  ", "    ", namesWords(g.names, shownNames)+": "+Clean(Sentence(g.text)), style.Width)
+		for _, g := range GroupNames(left) {
+			wrapped(p, "  ", "    ", namesWords(g.Names, shownNames)+": "+Clean(Sentence(g.Text)), style.Width)
 		}
 	}
 	return p.err

@@ -11,24 +11,24 @@ import (
 // shownNames is the most names of a group that the terminal lists.
 const shownNames = 40
 
-// nameGroup is several devices of which the same is to be said.
-type nameGroup struct {
-	names []string
-	text  string
+// NameGroup is several devices of which the same is to be said.
+type NameGroup struct {
+	Names []string
+	Text  string
 }
 
-// groupNames gathers names by their text, in order of the first of each.
-func groupNames(list []lot.Unsorted) []nameGroup {
-	var groups []nameGroup
+// GroupNames gathers names by their text, in order of the first of each.
+func GroupNames(list []lot.Unsorted) []NameGroup {
+	var groups []NameGroup
 	at := map[string]int{}
 	for _, u := range list {
 		i, ok := at[u.Why]
 		if !ok {
 			i = len(groups)
 			at[u.Why] = i
-			groups = append(groups, nameGroup{text: u.Why})
+			groups = append(groups, NameGroup{Text: u.Why})
 		}
-		groups[i].names = append(groups[i].names, u.Name)
+		groups[i].Names = append(groups[i].Names, u.Name)
 	}
 	return groups
 }
@@ -53,12 +53,12 @@ func notMeasured(p *printer, s Sheet, style Style) {
 			p.line("%s", style.paint("Without a value", bold))
 		}
 		words := WordsOf(state)
-		for _, g := range groupNames(list) {
-			who := namesWords(g.names, shownNames)
-			if !strings.HasPrefix(strings.ToLower(g.text), words.Word) { // the word once is enough
+		for _, g := range GroupNames(list) {
+			who := namesWords(g.Names, shownNames)
+			if !strings.HasPrefix(strings.ToLower(g.Text), words.Word) { // the word once is enough
 				who += " (" + words.Word + ")"
 			}
-			wrapped(p, "  ", "    ", who+": "+g.text, style.Width)
+			wrapped(p, "  ", "    ", who+": "+g.Text, style.Width)
 		}
 		if words.Next != "" {
 			wrapped(p, "    next: ", "    ", words.Next, style.Width)

@@ -268,6 +268,9 @@ func TestInBrowser(t *testing.T) {
 	t.Run("fits a phone", func(t *testing.T) {
 		ctx := tab(t, b, s.URL, chromedp.EmulateViewport(360, 780))
 		require.LessOrEqual(t, js[float64](t, ctx, `document.documentElement.scrollWidth`), 360.0, "the page as a whole scrolls sideways")
+		// Names of a bin have the width of the page, not one line each.
+		require.Greater(t, js[float64](t, ctx, `Math.min(...[...document.querySelectorAll("#bins tbody td:last-child")].map(c => c.getBoundingClientRect().width))`), 280.0)
+		require.Equal(t, 0.0, js[float64](t, ctx, `(() => { const b = document.querySelector("#bins .scroll"); return b.scrollWidth - b.clientWidth; })()`), "the table of bins scrolls sideways")
 	})
 }
 

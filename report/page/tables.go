@@ -53,10 +53,9 @@ func (v *view) spread(k *known) {
 	}
 	if sp := k.Spread.Split; sp != nil {
 		symbol, unit := report.KeyOf(sp.By).Symbol, report.KeyOf(sp.By).Unit
-		names := func(list []string) string { return report.Clean(strings.Join(list, ", ")) }
 		v.Groups = []group{
-			{richf("Lower group, %s, %s up to %s", plural(len(sp.Low), "device"), symbol, report.FormatPlain(sp.GapLow, math.NaN(), unit)), names(sp.Low)},
-			{richf("Upper group, %s, %s from %s", plural(len(sp.High), "device"), symbol, report.FormatPlain(sp.GapHigh, math.NaN(), unit)), names(sp.High)},
+			{richf("Lower group, %s, %s up to %s", plural(len(sp.Low), "device"), symbol, report.FormatPlain(sp.GapLow, math.NaN(), unit)), foldNames(sp.Low)},
+			{richf("Upper group, %s, %s from %s", plural(len(sp.High), "device"), symbol, report.FormatPlain(sp.GapHigh, math.NaN(), unit)), foldNames(sp.High)},
 		}
 	}
 	l := &table{Caption: "Limits behind the flags", Heads: []head{{"quantity", false}, {"unit", false}, {"low", true}, {"high", true}, {"× robust sd", true}, {"basis", false}}}
@@ -83,7 +82,7 @@ func (v *view) bins(k *known) {
 	}
 	sc := report.BinScale(srt)
 	unit := sc.Unit(report.KeyOf(srt.By).Unit)
-	t := &table{Caption: richf("Bins by %s", k.KeyPhrase(srt.By)), Heads: []head{{"bin", false}, {richf("from (%s)", unit), true}, {richf("below (%s)", unit), true}, {"devices", true}, {"which", false}}}
+	t := &table{Class: "bins", Caption: richf("Bins by %s", k.KeyPhrase(srt.By)), Heads: []head{{"bin", false}, {richf("from (%s)", unit), true}, {richf("below (%s)", unit), true}, {"devices", true}, {"which", false}}}
 	for _, b := range report.BinRows(srt) {
 		var names []string
 		for _, d := range b.Devices {
@@ -93,7 +92,7 @@ func (v *view) bins(k *known) {
 			}
 			names = append(names, name)
 		}
-		list := cell{Text: plain(strings.Join(names, ", "))}
+		list := cell{Text: foldNames(names)}
 		if len(names) == 0 {
 			list = cell{Text: "none", None: true}
 		}
@@ -105,9 +104,31 @@ func (v *view) bins(k *known) {
 	}
 	t.Note = rich(note + " A device within 2 standard uncertainties of an edge names the bin across it as well.")
 	v.Bins = t
-	for _, u := range k.Unsorted() {
-		v.Unsorted = append(v.Unsorted, named{Name: report.Clean(u.Name), Texts: []template.HTML{rich(report.Sentence(u.Why))}})
+	for _, g := range report.GroupNames(k.Unsorted()) {
+		why := rich(report.Sentence(g.Text))
+		if len(g.Names) > mostNames {
+			v.Unsorted = append(v.Unsorted, group{richf("%d devices", len(g.Names)), why + " " + foldNames(g.Names)})
+			continue
+		}
+		v.Unsorted = append(v.Unsorted, group{"<bdi>" + plain(strings.Join(g.Names, ", ")) + "</bdi>", why})
 	}
+}
+
+// Longer lists of names are folded, with the first few in sight.
+const (
+	mostNames = 40
+	headNames = 30
+)
+
+// foldNames lists names; a long list shows its first and keeps the others one
+// click away. Printed it is whole where the browser can open it.
+func foldNames(names []string) template.HTML {
+	if len(names) <= mostNames {
+		return plain(strings.Join(names, ", "))
+	}
+	return plain(strings.Join(names[:headNames], ", ")) +
+		template.HTML(fmt.Sprintf(` <details class="more"><summary>and %d more</summary>`, len(names)-headNames)) +
+		plain(strings.Join(names[headNames:], ", ")) + "</details>"
 }
 
 func (v *view) flags(k *known) {

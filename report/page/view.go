@@ -31,7 +31,7 @@ type view struct {
 	Limits     *table
 	Groups     []group // the two populations, where there are two
 	Bins       *table
-	Unsorted   []named
+	Unsorted   []group // in no bin, by reason
 	Devices    deviceTable
 	Flags      []named
 	FlagCount  string
@@ -78,10 +78,10 @@ type named struct {
 	Codes []string
 }
 
-// group is one of two populations.
+// group is several devices of which one thing is said.
 type group struct {
-	Head  template.HTML
-	Names string
+	Head template.HTML
+	Text template.HTML
 }
 
 // remark is one warning with the devices it holds for.
@@ -90,13 +90,13 @@ type remark struct {
 	Who     string
 	Meaning template.HTML
 	Next    template.HTML
-	Names   string // "" when it holds for all
+	Names   template.HTML // "" when it holds for all
 }
 
 func newRemark(g report.RemarkGroup) remark {
 	r := remark{Code: report.Clean(g.Code), Who: "every measured device", Meaning: rich(report.Sentence(g.Meaning)), Next: rich(g.Next)}
 	if !g.All {
-		r.Who, r.Names = plural(len(g.Devices), "device"), report.Clean(strings.Join(g.Devices, ", "))
+		r.Who, r.Names = plural(len(g.Devices), "device"), foldNames(g.Devices)
 	}
 	return r
 }
@@ -109,6 +109,7 @@ type cell struct {
 }
 
 type table struct {
+	Class   string
 	Caption template.HTML
 	Heads   []head
 	Rows    [][]cell
