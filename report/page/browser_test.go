@@ -261,6 +261,7 @@ func TestInBrowser(t *testing.T) {
 		require.Equal(t, "none", js[string](t, ctx, `getComputedStyle(document.querySelector("nav")).display`))
 		require.Equal(t, "rgb(255, 255, 255)", js[string](t, ctx, `getComputedStyle(document.body).backgroundColor`))
 		require.Equal(t, "table-header-group", js[string](t, ctx, `getComputedStyle(document.querySelector("#device-table thead")).display`))
+		require.Equal(t, 1.0, js[float64](t, ctx, `Math.max(...[...document.querySelectorAll("#device-table tbody th bdi")].map(n => n.getClientRects().length && Math.round(n.getBoundingClientRect().height / parseFloat(getComputedStyle(n).lineHeight))))`), "a short name of a device is broken")
 		// A button box in a head keeps the engine from repeating it on each page.
 		require.Equal(t, "contents", js[string](t, ctx, `getComputedStyle(document.querySelector("#device-table thead button")).display`))
 	})

@@ -68,7 +68,7 @@ func (v *view) devices(k *known) {
 		absolute = absolute || c.absolute != nil
 		column(deviceHead{Text: rich(report.KeyOf(key).Symbol), Unit: c.unit, Class: "r", Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.cells[i] })
 		if c.absolute != nil {
-			column(deviceHead{Text: "absolute", Unit: c.unit, Class: "r n", Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.absolute[i] })
+			column(deviceHead{Text: "± abs.", Unit: c.unit, Class: absoluteClass(key), Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.absolute[i] })
 		}
 		column(deviceHead{Text: "n", Class: "r n", Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.ns[i] })
 		if key == fit.KeyVt && methods {
@@ -116,7 +116,7 @@ func (v *view) devices(k *known) {
 	t.Body = deviceRows(rows)
 	t.Note = "± is one standard uncertainty within the session (k = 1), the one that counts when devices of this lot are compared with each other; n is the number of points a value rests on."
 	if absolute {
-		t.Note += " absolute: one standard uncertainty against the SI unit, gain of the meters and tolerance of the load resistor included, the one that counts against a limit of the data sheet."
+		t.Note += " ± abs. is one standard uncertainty against the SI unit, gain of the meters and tolerance of the load resistor included, the one that counts against a limit of the data sheet."
 	}
 	if k.any(fit.KeyIdss) {
 		t.Note += " " + rich(report.LeakageNote)
@@ -219,13 +219,23 @@ func (k *known) column(key fit.Key) quantityColumn {
 	return col
 }
 
+// absoluteClass leaves the absolute uncertainties of gains and leakage out of the
+// printed table, which has no room for them: data sheets limit gate voltages, and
+// the table of uncertainties has the medians of all.
+func absoluteClass(key fit.Key) string {
+	if report.KeyOf(key).Unit == "V" {
+		return "r n"
+	}
+	return "r n screen"
+}
+
 // absolutes lays out the absolute uncertainties of one quantity; nil where none
 // is known.
 func (k *known) absolutes(key fit.Key, sc report.Scale) []deviceCell {
 	cells, found, deepest := make([]deviceCell, len(k.Devices)), false, 0
 	texts := make([]string, len(k.Devices))
 	for i := range k.Devices {
-		cells[i].Class = "r n"
+		cells[i].Class = absoluteClass(key)
 		q := k.Devices[i].Result.At(key)
 		d, ok := report.DecimalsFor(sc.Of(q.UAbsolute))
 		if !q.Ok() || !ok {

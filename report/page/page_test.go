@@ -385,7 +385,7 @@ func TestAbsoluteUncertaintyBesideTheOther(t *testing.T) {
 	s := invented.Lot(invented.Options{Devices: 10, Points: 10, Seed: 1})
 	s.Devices[0].Result.VgsIdle = fit.Quantity{Value: 3.25, U: 0.0005, UBetween: math.NaN(), UAbsolute: 0.009, N: 4}
 	require.Regexp(t, `D01 3\.25000 ± 0\.00050 ± 0\.0090 4 `, words(write(t, s)))
-	require.Contains(t, words(write(t, s)), "absolute: one standard uncertainty")
+	require.Contains(t, words(write(t, s)), "± abs. is one standard uncertainty")
 	for i := range s.Devices {
 		for _, key := range fit.Keys {
 			s.Devices[i].Result.At(key).UAbsolute = math.NaN()
@@ -393,5 +393,5 @@ func TestAbsoluteUncertaintyBesideTheOther(t *testing.T) {
 	}
 	without := words(write(t, s))
 	require.Regexp(t, `D01 3\.25000 ± 0\.00050 4 `, without)
-	require.NotContains(t, without, "absolute: one standard")
+	require.NotContains(t, without, "± abs.")
 }
