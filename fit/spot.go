@@ -68,7 +68,7 @@ func (w *work) spot(r *Result) {
 	switch {
 	case got > 0:
 		r.State = Measured
-		if got < asked {
+		if got < asked && !r.GmIdle.Ok() {
 			w.warn(CodeFewPoints, w.spotReason())
 		}
 		if r.Vgsth.Ok() {
@@ -198,15 +198,14 @@ func (w *work) spotGain(r *Result) {
 	if !positive(i) {
 		return
 	}
-	for j := range w.pts {
-		p := &w.pts[j]
-		gm := math.Abs(at(w.c.Gm, p.k))
-		if positive(gm) && math.Abs(p.i-i) <= 0.05*i {
+	for k := range w.c.Gm { // a list may give it at a current of its own, without a gate voltage
+		gm, id := math.Abs(w.c.Gm[k]), math.Abs(at(w.c.Id, k))
+		if positive(gm) && math.Abs(id-i) <= 0.05*i {
 			q := None()
 			q.Value, q.N = gm, 1
 			q.U = random(spotGmStep(gm), 0)
 			r.GmIdle = q
-			w.warn(CodeSpotOnly, "Transconductance as given at "+amps(p.i)+".")
+			w.warn(CodeSpotOnly, "Transconductance as given at "+amps(id)+".")
 			return
 		}
 	}

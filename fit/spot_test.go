@@ -221,3 +221,17 @@ func TestTwoSpotGainIsHonest(t *testing.T) {
 		t.Errorf("mean error at the upper current %.1f %%", 100*mean)
 	}
 }
+
+// A list may give the threshold at one current and g_m at another: the point of
+// the g_m has no gate voltage, and is no missing reading.
+func TestTransconductanceAtACurrentOfItsOwn(t *testing.T) {
+	s := unknownSetup()
+	s.Spot, s.TestCurrent, s.IdleCurrent = true, 0.01, 1
+	r := One(Curve{Vg: []float64{3.009, math.NaN()}, Id: []float64{0.01, 1}, Gm: []float64{math.NaN(), 4.55}}, s)
+	if r.State != Measured || r.Vgsth.Value != 3.009 || r.GmIdle.Value != 4.55 || r.VgsIdle.Ok() {
+		t.Errorf("%+v", r)
+	}
+	if r.Has(CodeMissingReading) || r.Has(CodeFewPoints) || len(r.LeftOut) > 0 {
+		t.Errorf("warnings %v, left out %v", r.Warnings, r.LeftOut)
+	}
+}

@@ -182,7 +182,9 @@ func (w *work) gather() {
 	for k := range n {
 		vg := w.c.Vg[k]
 		if !finiteNumber(vg) {
-			w.leaveUnread(k, vg)
+			if math.IsInf(vg, 0) || !positive(math.Abs(at(w.c.Gm, k))) { // else a transconductance given for itself
+				w.leaveUnread(k, vg)
+			}
 			continue
 		}
 		p := point{k: k, vg: w.gate * vg, a: math.NaN(), l: math.NaN()}
