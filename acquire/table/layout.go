@@ -43,7 +43,7 @@ func (r *reader) findLayout() error {
 			device.as = string(RoleIgnore)
 			device = nil
 		}
-		if device == nil {
+		if device == nil && !r.bySides() {
 			r.layout = layoutPerDevice
 			return r.fileDevice()
 		}
@@ -232,10 +232,20 @@ func (r *reader) spotCurrent() record.Num {
 	return r.opt.SpotCurrent.Else(r.opt.Given.SpotCurrent).Else(r.talkCond.SpotCurrent)
 }
 
+// bySides names the devices by package and side where both have a column and
+// nothing else names them.
+func (r *reader) bySides() bool {
+	r.sided = r.first(string(RolePackage)) != nil && r.first(string(RoleSide)) != nil
+	if r.sided {
+		r.note("no column names the devices: they are named by package and side, P1A, P1B, ...")
+	}
+	return r.sided
+}
+
 // spotLayout settles the currents of the spot columns.
 func (r *reader) spotLayout(device *column) error {
 	r.layout = layoutSpot
-	if device == nil {
+	if device == nil && !r.bySides() {
 		if err := r.numberDevices(); err != nil {
 			return err
 		}

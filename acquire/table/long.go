@@ -213,6 +213,9 @@ func (l *longReader) newBuilder() *builder {
 			*who.at(i) = string(trim(l.w.cells[c.index]))
 		}
 	}
+	if l.r.sided {
+		who.device = who.pkg + who.side
+	}
 	bad := who.check()
 	b := &builder{names: who, bad: bad, cols: make([]buffer, len(l.fields))}
 	if bad == "" {

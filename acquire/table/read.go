@@ -53,6 +53,7 @@ type reader struct {
 	layout     string
 	summaries  []remarkLine // refused rows whose device cell is a summary word, with it
 	numbered   bool         // devices are numbered by their rows
+	sided      bool         // devices are named by package and side
 	footer     int          // refused rows that are the foot of a spreadsheet
 
 	talk        []remarkLine // comments and what stands above the header

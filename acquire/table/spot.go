@@ -110,6 +110,9 @@ func (s *spotReader) row() *builder {
 			*who.at(i) = string(trim(s.w.cells[c.index]))
 		}
 	}
+	if s.r.sided {
+		who.device = who.pkg + who.side
+	}
 	bad := who.check()
 	b := &builder{names: who, sweep: "spot"}
 	gm := 2
