@@ -43,16 +43,7 @@ func openTerminal(t *testing.T) (keys, tty *os.File) {
 // TestAsksOnATerminal: what a file leaves open is asked where stdin is a
 // terminal, asked again after a wrong answer, and taken from there.
 func TestAsksOnATerminal(t *testing.T) {
-	if testing.Short() {
-		t.Skip("builds the program")
-	}
-	dir := t.TempDir()
-	bin := filepath.Join(dir, "gatesill")
-	build := exec.Command("go", "build", "-o", bin, ".")
-	build.Env = append(os.Environ(), "CGO_ENABLED=0")
-	if out, err := build.CombinedOutput(); err != nil {
-		t.Fatalf("build: %v\n%s", err, out)
-	}
+	dir, bin := buildProgram(t)
 	keys, tty := openTerminal(t)
 	cmd := exec.Command(bin, "--store", filepath.Join(dir, "s.db"), "import", "audio", "../../testdata/scenarios/s3_audio_100.csv")
 	var out bytes.Buffer

@@ -65,7 +65,7 @@ func helpExit(env *job.Env) error {
 		text string
 	}{
 		{job.ExitDone, "done, also when a fit declined to give a number"},
-		{job.ExitFailed, "the job failed, or some of several files were refused, or a file is ambiguous"},
+		{job.ExitFailed, "something went wrong: a file refused or ambiguous, no such lot, no space"},
 		{job.ExitUsage, "used wrongly"},
 		{job.ExitNo, "the answer is no, and --fail asked for that"},
 		{job.ExitInstrument, "trouble with an instrument or a port"},

@@ -39,9 +39,9 @@ type Env struct {
 // Exit codes, as promised to scripts.
 const (
 	ExitDone        = 0
-	ExitFailed      = 1   // the job failed, or some of several files were refused
+	ExitFailed      = 1   // something was refused or went wrong
 	ExitUsage       = 2   // used wrongly
-	ExitNo          = 3   // the answer is 'no' and --fail asked for that
+	ExitNo          = 3   // --fail, and the answer is no
 	ExitInstrument  = 4   // instrument or port trouble
 	ExitInterrupted = 130 // Ctrl-C
 )
