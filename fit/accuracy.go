@@ -65,7 +65,7 @@ func decimals(x float64) (int, bool) {
 	for digits := range maxDigits {
 		d := digits - lead
 		y := x * pow10(d)
-		if math.Abs(y-math.Round(y)) < 1e-10*y+1e-9 && math.Round(y) > 0 {
+		if r := math.Floor(y + 0.5); r > 0 && math.Abs(y-r) < 1e-10*y+1e-9 {
 			return d, true
 		}
 	}
@@ -93,7 +93,7 @@ const quantaSpan = 3
 
 // quanta finds the step of the display at every reading: the power of ten of
 // which it and its neighbours are whole multiples, 0 where they look computed
-// rather than read. Trailing zeros of single readings do not mislead it, a
+// rather than read, or where all readings are the same. Trailing zeros of single readings do not mislead it, a
 // change of range does for three readings only.
 //
 // Inputs: x readings in sorted order (not modified), place[i] scratch of the
@@ -112,16 +112,42 @@ func quanta(x, q []float64, place []int8) {
 		}
 	}
 	for i := range x {
-		m := int8(none)
+		m, moves := int8(none), len(x) <= quantaSpan
 		for j := max(0, i-quantaSpan); j <= min(len(x)-1, i+quantaSpan); j++ {
 			m = max(m, place[j])
+			moves = moves || x[j] != x[i]
 		}
-		switch m {
-		case none, free:
+		switch {
+		case m == free:
 			q[i] = 0
+		case m == none || !moves:
+			q[i] = math.NaN() // one reading over and over shows no step: see below
 		default:
 			q[i] = pow10(-int(m))
 		}
+	}
+	// The step of the nearest readings that show one.
+	for i, step := 0, 0.0; i < len(q); i++ {
+		if !math.IsNaN(q[i]) {
+			step = q[i]
+			continue
+		}
+		j := i
+		for j < len(q) && math.IsNaN(q[j]) {
+			j++
+		}
+		behind := step
+		if j < len(q) {
+			behind = q[j]
+		}
+		for k := i; k < j; k++ {
+			if k-i < j-k && i > 0 {
+				q[k] = step
+			} else {
+				q[k] = behind
+			}
+		}
+		i = j - 1
 	}
 }
 

@@ -104,3 +104,19 @@ func TestQuantaFollowTheRange(t *testing.T) {
 		}
 	}
 }
+
+func TestQuantityAsJSON(t *testing.T) {
+	for _, c := range []struct {
+		q    Quantity
+		want string
+	}{
+		{None(), `{"value":null,"u":null,"u_between":null,"u_absolute":null,"n":0}`},
+		{Quantity{3.5, 0.001, math.NaN(), math.Inf(1), 4}, `{"value":3.5,"u":0.001,"u_between":null,"u_absolute":null,"n":4}`},
+		{Quantity{N: 1}, `{"value":0,"u":0,"u_between":0,"u_absolute":0,"n":1}`},
+	} {
+		b, err := c.q.MarshalJSON()
+		if err != nil || string(b) != c.want {
+			t.Errorf("%+v: %s, %v; want %s", c.q, b, err, c.want)
+		}
+	}
+}

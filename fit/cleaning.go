@@ -80,16 +80,29 @@ func (w *work) drop(j int, code, text string) {
 	w.pts = slices.Delete(w.pts, j, j+1)
 }
 
+// leftOutFor says, by code, why several points were left out.
+var leftOutFor = [...]struct{ code, why string }{
+	{CodeOverload, "a meter was over its range"},
+	{CodeMissingReading, "a reading is missing"},
+	{CodeDecadeSpike, "ten times too large or too small"},
+	{CodeRangeGlitch, "a jump where the meter changed its range"},
+	{CodeStuckReading, "a reading stands still while the rest moves"},
+	{CodeOutOfLine, "they contradict the points around them"},
+	{CodeCurrentMismatch, "the two readings of the current disagree and fit neither neighbour"},
+	{CodePrefixLost, "the two readings of the current are a factor of a thousand apart and fit neither neighbour"},
+}
+
 // tellLeftOut sums the points left out up in one warning a code.
 func (w *work) tellLeftOut() {
-	for _, code := range [...]string{CodeOverload, CodeMissingReading, CodeDecadeSpike, CodeRangeGlitch, CodeStuckReading, CodeOutOfLine} {
+	for _, kind := range leftOutFor {
 		var at []float64
-		n := 0
+		n, why := 0, ""
 		for _, l := range w.left {
-			if l.Code != code {
+			if l.Code != kind.code {
 				continue
 			}
 			n++
+			why = l.Text
 			if v := w.c.Vg[l.Index]; finiteNumber(v) {
 				at = append(at, v)
 			}
@@ -101,18 +114,11 @@ func (w *work) tellLeftOut() {
 		if len(at) > 0 {
 			text += " at " + places(at)
 		}
-		if info, ok := Explain(code); ok {
-			text += ": " + lowerFirst(info.Meaning)
+		if n > 1 {
+			why = kind.why
 		}
-		w.warns = append(w.warns, Warning{code, text})
+		w.warns = append(w.warns, Warning{kind.code, text + ": " + why + "."})
 	}
-}
-
-func lowerFirst(s string) string {
-	if s != "" && s[0] >= 'A' && s[0] <= 'Z' {
-		return string(s[0]+'a'-'A') + s[1:]
-	}
-	return s
 }
 
 // mergeEqual averages points of exactly one gate voltage.

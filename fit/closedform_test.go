@@ -205,3 +205,29 @@ func TestTangentBias(t *testing.T) {
 	near(t, "√I at 0.5 V", 1e3*tangent(sqrt, 0.5), -12.195, 1e-3)
 	near(t, "√I at 0.3 V", 1e3*tangent(sqrt, 0.3), -4.433, 1e-3)
 }
+
+// Read by 6,000-count meters, the greatest slope stays within some percent of the
+// true one at the places that are candidates, and points a fraction of a
+// millivolt apart do not make it explode.
+func TestTransconductanceThroughMeters(t *testing.T) {
+	d := simDevice{law: smoothLaw, vt: 3, beta: 2, n: 1.4}
+	for _, b := range []simBench{{circuit: Diode}, {circuit: Fixed, vds: 10}, {circuit: Fixed, vds: 0.1}} {
+		for _, step := range []float64{0.002, 0.01, 0.05} {
+			sum := 0.0
+			for seed := range uint64(20) {
+				c := d.sweep(randomSource(seed), b, handheld(), 2.5, 4.2, step, step/3)
+				s := b.setup()
+				s.TestCurrent = 1e-3
+				got := One(c, s).GmMax
+				truth := 0.0
+				for v := 2.6; v < 4.2-3*step; v += 0.005 {
+					truth = math.Max(truth, (d.at(b, v+1e-5)-d.at(b, v-1e-5))/2e-5)
+				}
+				sum += math.Pow(got.Value/truth-1, 2)
+			}
+			if rms := math.Sqrt(sum / 20); rms > 0.05 {
+				t.Errorf("%s %g V step %g: %.1f %% rms", b.circuit, b.vds, step, 100*rms)
+			}
+		}
+	}
+}

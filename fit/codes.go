@@ -149,7 +149,7 @@ var Codes = []CodeInfo{
 		"Look for noise, hysteresis or oscillation around that gate voltage."},
 	{CodeBelowSweep,
 		"The part already carries more than the current asked for at the first point.",
-		"Start the sweep at a lower gate voltage, or ask for a larger current."},
+		"Start the sweep at the off voltage, or ask for a larger current."},
 	{CodeOverload,
 		"A meter was beyond its range, and the point was left out.",
 		"Use a larger range."},

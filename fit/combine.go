@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"math"
 	"slices"
+	"strconv"
 )
 
 // sweepsApart is how many standard uncertainties of their difference two sweeps
@@ -37,6 +38,9 @@ func Combine(rs []Result, dirs []string) Result {
 	r.LeftOut = nil
 	r.Warnings = joinWarnings(rs)
 	r.VtBy = combineThresholds(rs, lead)
+	for i := range rs {
+		r.GmRising = r.GmRising || rs[i].GmRising
+	}
 	for _, k := range Keys {
 		if len(rs) == 1 {
 			break
@@ -44,7 +48,7 @@ func Combine(rs []Result, dirs []string) Result {
 		q, agree := combineQuantity(rs, k, lead)
 		*r.At(k) = q
 		if !agree {
-			r.Warnings = append(r.Warnings, Warning{CodeSweepsDisagree, disagreement(rs, k)})
+			r.Warnings = append(r.Warnings, Warning{CodeSweepsDisagree, disagreement(rs, dirs, k)})
 		}
 	}
 	r.Warnings = append(r.Warnings, checkHeating(rs, dirs)...)
@@ -186,14 +190,33 @@ func agree(qs []Quantity) bool {
 	return true
 }
 
-func disagreement(rs []Result, k Key) string {
-	lo, hi := math.Inf(1), math.Inf(-1)
+// disagreement tells in words what two sweeps give for one quantity: the two that
+// lie furthest apart, by their direction where those differ, else by their place.
+func disagreement(rs []Result, dirs []string, k Key) string {
+	a, b := -1, -1
 	for j := range rs {
-		if q := *rs[j].At(k); q.Ok() {
-			lo, hi = math.Min(lo, q.Value), math.Max(hi, q.Value)
+		q := *rs[j].At(k)
+		if !q.Ok() {
+			continue
+		}
+		if a < 0 || q.Value < rs[a].At(k).Value {
+			a = j
+		}
+		if b < 0 || q.Value > rs[b].At(k).Value {
+			b = j
 		}
 	}
-	return string(k) + " differs between the sweeps by more than their uncertainty: " + number4(lo) + " to " + number4(hi) + "; the first up sweep is used."
+	a, b = min(a, b), max(a, b)
+	one, other := direction(dirs, a), direction(dirs, b)
+	if one == "down" && other == "up" {
+		a, b, one, other = b, a, other, one
+	}
+	if one == other || one == "" || other == "" {
+		one, other = "in sweep "+strconv.Itoa(a+1), "in sweep "+strconv.Itoa(b+1)
+	}
+	x, y := spoken(k, rs[a].At(k).Value), spoken(k, rs[b].At(k).Value)
+	return capital(keyWords[k]) + " differs between the sweeps by more than their uncertainty: " +
+		x + " " + one + ", " + y + " " + other + "; the first up sweep is used."
 }
 
 // combineThresholds averages each method over the sweeps that have it.

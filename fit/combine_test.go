@@ -135,3 +135,35 @@ func TestHeatingOnCurves(t *testing.T) {
 		t.Errorf("the distance is not told: %s", text)
 	}
 }
+
+// The sentence names the quantity in words and tells both numbers with their
+// unit and sweep.
+func TestDisagreementInWords(t *testing.T) {
+	a, b := measured(3.381, 1e-3, 0), measured(3.301, 1e-3, 0)
+	a.GmMax, b.GmMax = quantity(1.5, 1e-3, 0), quantity(1.7, 1e-3, 0)
+	for _, c := range []struct {
+		dirs []string
+		want []string
+	}{
+		{[]string{"down", "up"}, []string{"V_GS(th) differs", "3.3010 V up, 3.3810 V down", "Largest transconductance differs", "1.7 S up, 1.5 S down"}},
+		{[]string{"up", "up"}, []string{"3.3810 V in sweep 1, 3.3010 V in sweep 2", "1.5 S in sweep 1, 1.7 S in sweep 2"}},
+		{nil, []string{"3.3810 V in sweep 1, 3.3010 V in sweep 2"}},
+	} {
+		text := warningText(Combine([]Result{a, b}, c.dirs), CodeSweepsDisagree)
+		for _, want := range c.want {
+			if !strings.Contains(text, want) {
+				t.Errorf("%v: %q is not in %q", c.dirs, want, text)
+			}
+		}
+		for _, k := range Keys {
+			if strings.Contains(text, string(k)) {
+				t.Errorf("%v: the key %s stands in %q", c.dirs, k, text)
+			}
+		}
+	}
+	for _, k := range Keys {
+		if keyWords[k] == "" {
+			t.Errorf("no words for %s", k)
+		}
+	}
+}

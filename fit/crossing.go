@@ -152,14 +152,18 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 	if hi-lo < 3 {
 		return false
 	}
-	o := root
-	best := w.grow(root, b, lo, hi, iref, e)
-	other := w.grow(logarithm, b, lo, hi, iref, e)
+	o, o2 := root, logarithm
+	best := w.grow(o, b, lo, hi, 2, iref, e)
+	other := w.grow(o2, b, lo, hi, 2, iref, e)
 	if other.ok() && (!best.ok() || other.bend < best.bend) {
-		best, other, o = other, best, logarithm
+		best, other, o, o2 = other, best, o2, o
 	}
 	if !best.ok() {
 		return false
+	}
+	best = w.grow(o, b, lo, hi, windowSide, iref, e)
+	if best.n > 4 {
+		other = w.grow(o2, b, lo, hi, best.n/2, iref, e)
 	}
 	c.v, c.gm, c.n = best.v, best.gm, best.n
 	c.u = best.u
@@ -222,21 +226,22 @@ func (w *work) reach(a, b int, iref float64) (lo, hi int) {
 }
 
 // grow lays polynomials of growing width around the crossing between b-1 and b
-// and keeps the widest whose estimate agrees with all narrower ones.
-func (w *work) grow(o ordinate, b, lo, hi int, iref, e float64) (best estimate) {
+// and keeps the widest, up to that many points on either side, whose estimate
+// agrees with all narrower ones.
+func (w *work) grow(o ordinate, b, lo, hi, widest int, iref, e float64) (best estimate) {
 	a := b - 1
 	pa, pb := &w.pts[a], &w.pts[b]
 	y := o.of(iref)
 	slope := (o.at(pb) - o.at(pa)) / (pb.vg - pa.vg)
 	middle, chord := (pa.vg+pb.vg)/2, (o.at(pa)+o.at(pb))/2
-	var win window
+	win := &w.win
 	least, most := math.Inf(-1), math.Inf(1)
-	for side := 2; ; side++ {
+	for side := 2; side <= widest; side++ {
 		win.lo, win.hi = max(lo, b-side), min(hi, b+side)
 		if side > 2 && (win.lo > b-side || win.hi < b+side) {
 			return best // only windows with points on both sides gain
 		}
-		got := w.solveWindow(&win, o, b, y, slope, e)
+		got := w.solveWindow(win, o, b, y, slope, e)
 		if !got.ok() {
 			return best
 		}
@@ -251,10 +256,9 @@ func (w *work) grow(o ordinate, b, lo, hi int, iref, e float64) (best estimate) 
 		if least > most {
 			return best
 		}
-		_, s := win.p.at(got.v)
-		slope = s
-		best = got
+		slope, best = got.s, got
 	}
+	return best
 }
 
 // solveWindow fits and solves one window. The degree is three with two points
@@ -306,7 +310,7 @@ func (w *work) leaning(o ordinate, g estimate, e float64) float64 {
 	if degree < 1 || m-cut <= degree {
 		return 0
 	}
-	var x, y, wt [2*windowSide + 2]float64
+	x, y, wt := &w.win.x, &w.win.y, &w.win.wt
 	for j := range m {
 		p := &w.pts[g.lo+j]
 		x[j], y[j] = p.vg, o.at(p)

@@ -20,12 +20,13 @@ const (
 	nominalSupply = 0.01
 )
 
-// settleCurrents decides which current is used at every point. Where both an
-// ammeter and a load resistor tell of it, the two are compared over the whole
-// curve and then point by point: a factor of 1000 is a lost prefix, a few
-// percent is R_L, its heating or a lead; what agrees is kept, weighed so that
-// the finer reading serves at low current; the neighbours settle what
-// disagrees.
+// settleCurrents decides which current is used at every point. An ammeter and a
+// load resistor that both tell of it are compared over the whole curve first: a
+// ratio near a power of 1000 means that the meter's prefix went missing on the
+// way, one off by some percent that the resistor is not what was said. Then
+// point by point: where they agree both count, each by its own uncertainty, and
+// where they do not, the one that continues the curve through the points beside
+// it.
 func (w *work) settleCurrents() {
 	if len(w.pts) == 0 {
 		return
@@ -83,10 +84,15 @@ func (w *work) calibrateSupply() {
 // wrong with it, and decides whose scale is kept.
 func (w *work) compareMeters() {
 	var ratios []float64
-	topA, topL := 0.0, 0.0
+	var topA, topL, countL, countA float64
 	for j := range w.pts {
-		topA = math.Max(topA, math.Abs(w.pts[j].a))
-		topL = math.Max(topL, math.Abs(w.pts[j].l))
+		p := &w.pts[j]
+		if !math.IsNaN(p.a) {
+			topA, countA = math.Max(topA, math.Abs(p.a)), math.Max(countA, p.qa)
+		}
+		if !math.IsNaN(p.l) {
+			topL, countL = math.Max(topL, math.Abs(p.l)), math.Max(countL, p.ql)
+		}
 	}
 	deadA, deadL := true, true
 	for j := range w.pts {
@@ -101,11 +107,11 @@ func (w *work) compareMeters() {
 	}
 	other := w.loadName()
 	switch {
-	case deadA && topL > clearCounts*w.pts[len(w.pts)-1].ql && topL > w.supplyDoubt()*clearCounts:
+	case deadA && topL > clearCounts*countL && topL > w.supplyDoubt()*clearCounts:
 		w.warn(CodeCurrentMismatch, "The ammeter reads nothing while "+other+" reaches "+amps(topL)+": "+other+" is used.")
 		w.dropAmmeter()
 		return
-	case deadL && w.byLoad && topA > clearCounts*w.pts[len(w.pts)-1].ql:
+	case deadL && w.byLoad && topA > clearCounts*countA:
 		w.warn(CodeCurrentMismatch, "V_L reads nothing while the ammeter reaches "+amps(topA)+": the ammeter is used.")
 		w.dropLoad()
 		return

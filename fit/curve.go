@@ -11,9 +11,11 @@ const (
 	Fixed     Circuit = "fixed" // Vds held
 )
 
-// Curve is the points of one sweep in measuring order, with the device's own
-// signs. Slices that are not nil have the same length. NaN is a missing
-// reading, ±Inf a reading beyond the meter's range (overload).
+// Curve is the points of one sweep in measuring order (on which nothing here
+// depends), with the device's own signs
+// (columns of a p-channel part may hold magnitudes). Slices that are not nil
+// have the same length. NaN is a missing reading, ±Inf a reading beyond the
+// meter's range (overload).
 type Curve struct {
 	Vg  []float64 // V, gate to source
 	Id  []float64 // A, drain current by an ammeter; nil: none
@@ -25,18 +27,21 @@ type Curve struct {
 
 // Accuracy is what is known of one meter on one range:
 // ±(Percent of the reading + Counts × Resolution). The zero value is a meter
-// of which nothing is known.
+// of which nothing is known. Percent and Counts both 0 with a Resolution: the
+// step of the display is known and counts as random part, an accuracy statement
+// is not and there is no absolute uncertainty.
 type Accuracy struct {
 	Top        float64 // greatest reading of the range, SI unit; +Inf: one range only
-	Percent    float64 // of the reading
+	Percent    float64 // of the reading, in percent: 0.5 is 0.5 %
 	Counts     float64
 	Resolution float64 // one count, SI unit
 	Noise      float64 // standard deviation of repeated readings, SI unit; 0: not known
-	Divisor    float64 // statement to standard uncertainty: √3 limit, 2 for k=2, 2.576 for 99 %
+	Divisor    float64 // statement to standard uncertainty: √3 limit, 2 for k=2, 2.576 for 99 %; 0: √3
 }
 
 // Setup is what a curve was taken under and what is asked of it. Unknown
-// numbers are NaN; currents asked for are magnitudes.
+// numbers are NaN; currents asked for are magnitudes, and not looked for when
+// they are not above zero. A Burden or RLTol of 0 is a known zero.
 type Setup struct {
 	Circuit   Circuit
 	PChannel  bool

@@ -37,9 +37,11 @@ func (w *work) leakage(r *Result) {
 	}
 	sum, uu, q, n := 0.0, 0.0, 0.0, 0
 	top := 0.0
+	least, most := math.Inf(1), math.Inf(-1)
 	for j := range w.pts {
 		p := &w.pts[j]
 		if math.Abs(p.vg-off) <= near+1e-9 {
+			least, most = math.Min(least, p.i), math.Max(most, p.i)
 			sum += p.i
 			uu += p.u * p.u
 			q = math.Max(q, p.q)
@@ -52,6 +54,9 @@ func (w *work) leakage(r *Result) {
 		return
 	}
 	u := math.Max(math.Sqrt(uu)/float64(n), q/math.Sqrt(12*float64(n)))
+	if most-least < q/4 {
+		u = math.Max(u, q/math.Sqrt(12)) // equal readings share one error of rounding
+	}
 	abs := w.relativeUsed(math.Max(math.Abs(i), q)) * math.Max(math.Abs(i), q)
 	r.Idss = Quantity{Value: w.sign * i, U: u, UBetween: math.NaN(), UAbsolute: rss(u, abs), N: n}
 	w.judgeLeakage(i, q, abs)

@@ -1,6 +1,9 @@
 package fit
 
-import "testing"
+import (
+	"strings"
+	"testing"
+)
 
 func TestLeakage(t *testing.T) {
 	d := simDevice{law: smoothLaw, vt: 3, beta: 2, n: 1.4}
@@ -65,5 +68,26 @@ func TestLeakage(t *testing.T) {
 	x = d.sweep(randomSource(1), b, handheld(), -4, 0, 0.1, 0)
 	if r := One(x, s); !r.Idss.Ok() || !r.Has(CodeDrainLeakage) {
 		t.Errorf("depletion: %g A, %s", r.Idss.Value, codesOf(r))
+	}
+}
+
+// The sentence tells the very limit that raises it: 2 % of the test current, at
+// least 20 µA (self-made).
+func TestLeakageSentence(t *testing.T) {
+	d := simDevice{law: smoothLaw, vt: 3.3, beta: 4.8, n: 1.4}
+	b := simBench{circuit: Fixed, vds: 10}
+	for _, c := range []struct {
+		test, limit float64
+		said        string
+	}{{10e-3, 200e-6, "more than 200 µA)"}, {0.5e-3, 20e-6, "more than 20 µA)"}, {100e-3, 2e-3, "more than 2 mA)"}} {
+		for _, share := range []float64{0.9, 1.1} {
+			d.leak = share * c.limit
+			s := b.setup()
+			s.TestCurrent = c.test
+			text := warningText(One(d.sweep(randomSource(71), b, exact(), 0, 4.2, 0.02, 0), s), CodeDrainLeakage)
+			if over := share > 1; strings.Contains(text, c.said) != over || (text != "") != over {
+				t.Errorf("%g A of leakage at a test current of %g A: %q", d.leak, c.test, text)
+			}
+		}
 	}
 }

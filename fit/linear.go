@@ -84,8 +84,7 @@ func (w *work) resistiveCurve() (*resistive, bool) {
 			continue
 		}
 		x := r.x[r.lo[j] : r.lo[j]+m]
-		var p poly
-		if p.fit(x, r.i[r.lo[j]:r.lo[j]+m], nil, 2) {
+		if p := &w.poly; p.fit(x, r.i[r.lo[j]:r.lo[j]+m], nil, 2) {
 			p.maps(r.x[j], nil, r.maps[j*m:(j+1)*m])
 			_, r.g[j] = p.at(r.x[j])
 			g = append(g, r.g[j])
@@ -165,6 +164,7 @@ func (w *work) tangent(r *resistive) (Threshold, bool) {
 	n := l.to - l.from
 	i := w.pts[min(len(w.pts)-1, r.from[l.to-1])].i
 	t := Threshold{From: r.from[l.from], To: w.oneBeyond(r, l.to)}
+	uvt = math.Max(uvt, w.stepFloor((t.From+t.To)/2))
 	t.Vt = w.gateQuantity(vt, uvt, l.model(), n)
 	t.Beta = w.withGain(Quantity{Value: b, U: ub, UBetween: math.NaN(), N: n}, i, 1, 1)
 	return t, true
@@ -233,6 +233,7 @@ func (w *work) ratioMethod(r *resistive) (t Threshold, theta Quantity, ok bool) 
 	uvt, ubeta, th, uth := w.throughRatio(r, &l, vt, b)
 	i := w.pts[r.from[to-1]].i
 	t = Threshold{From: r.from[from], To: w.oneBeyond(r, to)}
+	uvt = math.Max(uvt, w.stepFloor((t.From+t.To)/2))
 	t.Vt = w.gateQuantity(vt, uvt, l.model(), m)
 	t.Beta = w.withGain(Quantity{Value: b * b, U: ubeta, UBetween: math.NaN(), N: m}, i, 1, 1)
 	theta = w.withGain(Quantity{Value: th, U: uth, UBetween: math.NaN(), N: m}, i, 0, 1)

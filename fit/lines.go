@@ -148,6 +148,7 @@ func (w *work) squareRoot() (Threshold, bool) {
 	n := len(l.sigma)
 	i := w.pts[l.to-1].i
 	t := Threshold{From: l.from, To: l.to}
+	uvt = math.Max(uvt, w.stepFloor((l.from+l.to)/2))
 	t.Vt = w.gateQuantity(vt, uvt, l.model(), n)
 	t.Beta = w.withGain(Quantity{Value: 2 * b * b, U: 4 * b * ub, UBetween: math.NaN(), N: n}, i, 1, 2)
 	return t, true

@@ -49,7 +49,11 @@ func (p *poly) fit(x, y, w []float64, degree int) bool {
 	}
 	p.x, p.w, p.degree = x, w, degree
 	if need := (degree + 1) * m; cap(p.b) < need {
-		p.b = make([]float64, need, max(need, (maxDegree+1)*(2*windowSide+2)))
+		room := need
+		if degree > 1 { // a window that may grow
+			room = max(need, (maxDegree+1)*(2*windowSide+2))
+		}
+		p.b = make([]float64, need, room)
 	} else {
 		p.b = p.b[:need]
 	}
@@ -161,7 +165,7 @@ func (p *poly) solve(y, start, lo, hi float64) (x, slope float64) {
 			return math.NaN(), math.NaN()
 		}
 		next := math.Min(math.Max(x-(v-y)/s, lo), hi)
-		if math.Abs(next-x) <= 1e-10*(hi-lo) {
+		if math.Abs(next-x) <= 1e-6*(hi-lo) { // the step after it squares that
 			_, s = p.at(next)
 			return next, s
 		}

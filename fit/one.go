@@ -46,6 +46,7 @@ func (w *work) evaluate(r *Result) {
 		w.tellLeftOut()
 		return
 	}
+	w.raiseToFoot()
 	w.clean()
 	if w.falling {
 		r.State = Declined
@@ -180,7 +181,8 @@ func (w *work) crossingQuantity(c crossing, i float64) Quantity {
 	if math.IsNaN(c.v) {
 		return None()
 	}
-	return w.gateQuantity(c.v, c.u, w.relativeUsed(i)*i/c.gm, c.n)
+	u := math.Max(c.u, w.stepFloor(c.b))
+	return w.gateQuantity(c.v, u, w.relativeUsed(i)*i/c.gm, c.n)
 }
 
 // tellCrossing warns of what is wrong with a crossing and gives the sentence
@@ -190,6 +192,9 @@ func (w *work) tellCrossing(c crossing, i float64) (why string) {
 	switch {
 	case c.below:
 		why = "The part already carries " + amps(first.i) + " at the first point, " + volts(w.gate*first.vg) + ", more than " + amps(i) + "."
+		if all, ok := w.flat(); ok {
+			why = w.flatSentence(all)
+		}
 		w.warn(CodeBelowSweep, why)
 		return why
 	case c.never:

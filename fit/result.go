@@ -85,12 +85,13 @@ type Result struct {
 	Vt      Quantity // V, extrapolated threshold by Method
 	Beta    Quantity // A/V², gain factor
 	Theta   Quantity // 1/V, mobility degradation
-	GmMax   Quantity // S
+	GmMax   Quantity // S, the greatest seen
 	GmIdle  Quantity // S, at the idle current
 	Idss    Quantity // A, drain leakage: I_D at the off voltage
 
 	Method    string               // behind Vt: "sqrt", "linear", "ratio" or "curve"; "current" when there is no Vt
 	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
+	GmRising  bool                 // GmMax lies at the end of the sweep: a longer one would give more
 	Crossings int                  // upward crossings of the test current
 	LeftOut   []LeftOut            // ascending by Index
 	Warnings  []Warning

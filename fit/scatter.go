@@ -31,10 +31,23 @@ const (
 // Biometrika 73 (1986) 625–633 (from memory), with four neighbours.
 // Checked: TestScatter.
 func (w *work) scatterNear(b int) float64 {
+	b = min(b, len(w.pts)-1)
+	total, known, ok := w.scatterOf(b)
+	if !ok {
+		if w.pts[b].ux > 0 {
+			return 0
+		}
+		return w.grid / math.Sqrt(12)
+	}
+	return math.Sqrt(math.Max(0, total-known))
+}
+
+// scatterOf is the variance, V², of single points about the curve near index b,
+// and the part of it that ux and u of the points explain; false where no point
+// can be compared.
+func (w *work) scatterOf(b int) (total, known float64, ok bool) {
 	var buf [2 * scatterReach]float64
 	r := buf[:0]
-	known := 0.0
-	b = min(b, len(w.pts)-1)
 	near := w.pts[b].i
 	flat := flatShare * w.risingTo(b)
 	for j := max(2, b-scatterReach); j < min(len(w.pts)-2, b+scatterReach); j++ {
@@ -44,18 +57,15 @@ func (w *work) scatterNear(b int) float64 {
 		if !(w.logSlope(j-2, j+2) > flat) {
 			continue
 		}
-		if v, k, ok := w.pseudoResidual(j); ok {
+		if v, k, ok := w.residual(j); ok {
 			r = append(r, v)
 			known += k
 		}
 	}
-	if len(r) == 0 {
-		if w.pts[b].ux > 0 {
-			return 0
-		}
-		return w.grid / math.Sqrt(12)
-	}
 	n := len(r)
+	if n == 0 {
+		return 0, 0, false
+	}
 	known /= float64(n)
 	slices.Sort(r)
 	kept := n
@@ -66,8 +76,29 @@ func (w *work) scatterNear(b int) float64 {
 	for _, v := range r[:kept] {
 		sum += v
 	}
-	mean := sum / float64(kept) / trimmedMean(kept, n)
-	return math.Sqrt(math.Max(0, mean-known))
+	return sum / float64(kept) / trimmedMean(kept, n), known, true
+}
+
+// stepFloor is the least random uncertainty, V, that a gate voltage read off
+// near index b can have by the step of the gate's display. Readings average out
+// the step only where noise, or voltages that are no multiples of it, dither
+// them: that shows as scatter of a quarter of the step or more. On a grid of set
+// values all readings may share one error of rounding. 0: no step stated, or
+// dithered.
+//
+// Source: B. Widrow, I. Kollár and M.-C. Liu, IEEE Trans. Instrum. Meas. 45
+// (1996) 353–361, on dither (from memory); the quarter is a judgement. Checked:
+// TestDisplayStepAlone.
+func (w *work) stepFloor(b int) float64 {
+	b = max(0, min(b, len(w.pts)-1))
+	a := rangeFor(w.s.Gate, w.pts[b].vg)
+	if !(a.Resolution > 0) || a.Noise >= a.Resolution/4 {
+		return 0
+	}
+	if total, _, ok := w.scatterOf(b); ok && math.Sqrt(total) >= a.Resolution/4 {
+		return 0
+	}
+	return a.Resolution / math.Sqrt(12)
 }
 
 // logSlope is d ln I/dV from point j to point k, 1/V; NaN where there is none.
@@ -108,6 +139,22 @@ func trimmedMean(kept, n int) float64 {
 	z := math.Sqrt2 * math.Erfinv(float64(kept)/float64(n))
 	p := float64(kept) / float64(n)
 	return (p - 2*z*math.Exp(-z*z/2)/math.Sqrt(2*math.Pi)) / p
+}
+
+// residual is pseudoResidual, computed once for every point: the points do not
+// change after they were cleaned.
+func (w *work) residual(j int) (square, known float64, ok bool) {
+	if w.residuals == nil {
+		w.residuals = make([][2]float64, len(w.pts))
+	}
+	r := &w.residuals[j]
+	if *r == [2]float64{} {
+		var ok bool
+		if r[0], r[1], ok = w.pseudoResidual(j); !ok {
+			r[1] = -1
+		}
+	}
+	return r[0], r[1], r[1] >= 0
 }
 
 // pseudoResidual is the squared distance, in V², of point j from the cubic

@@ -18,6 +18,14 @@ const (
 	// spotPlaces is the least number of decimals, of a volt, that a spot's
 	// display is taken to have: a trailing zero does not show.
 	spotPlaces = 2
+	// spotModel divides the distance between square law and chord to what the
+	// square law between two readings may be wrong by (chosen on self-made curves,
+	// TestTwoSpotGainIsHonest).
+	spotModel = 6.0
+	// spotKnee is the overdrive, V, over which a smooth knee fades into the square
+	// law: 2 n kT/q with n = 1.7, by the interpolation of Enz, Krummenacher and
+	// Vittoz, Analog Integr. Circuits Signal Process. 8 (1995) 83–114 (from memory).
+	spotKnee = 2 * 1.7 * thermalVoltage
 )
 
 // isSpot reports whether the curve is one or two readings rather than a sweep.
@@ -60,7 +68,7 @@ func (w *work) spot(r *Result) {
 	switch {
 	case got > 0:
 		r.State = Measured
-		if got < asked {
+		if got < asked && !r.GmIdle.Ok() {
 			w.warn(CodeFewPoints, w.spotReason())
 		}
 		if r.Vgsth.Ok() {
@@ -170,8 +178,18 @@ func (w *work) spotGainError(p *point, i float64) float64 {
 }
 
 // spotGain fills in the transconductance at the idle current: as given at about
-// that current, else the secant between two readings around it. Without an idle
-// current it is that at the test current.
+// that current, else from two readings around it. Without an idle current it is
+// that at the test current.
+//
+// Two readings give g(I) = 2 √I (√I₂-√I₁)/(V₂-V₁), the slope of the square law
+// through both. The chord (I₂-I₁)/(V₂-V₁) is that slope at one current between
+// them only and a third too small at the upper of two that are ten times apart.
+// The uncertainty holds a spotModel-th of the distance between the two at either
+// reading, (√I₂-√I₁)²/(V₂-V₁), for mobility and series resistance, and what
+// a smooth knee moves and bends at these overdrives.
+//
+// Source: square law, H. Shichman and D. A. Hodges, IEEE J. Solid-State Circuits
+// SC-3 (1968) 285–289. Checked: TestTwoSpots, TestTwoSpotGainIsHonest.
 func (w *work) spotGain(r *Result) {
 	i := w.s.IdleCurrent
 	if !positive(i) {
@@ -180,15 +198,14 @@ func (w *work) spotGain(r *Result) {
 	if !positive(i) {
 		return
 	}
-	for j := range w.pts {
-		p := &w.pts[j]
-		gm := math.Abs(at(w.c.Gm, p.k))
-		if positive(gm) && math.Abs(p.i-i) <= 0.05*i {
+	for k := range w.c.Gm { // a list may give it at a current of its own, without a gate voltage
+		gm, id := math.Abs(w.c.Gm[k]), math.Abs(at(w.c.Id, k))
+		if positive(gm) && math.Abs(id-i) <= 0.05*i {
 			q := None()
 			q.Value, q.N = gm, 1
 			q.U = random(spotGmStep(gm), 0)
 			r.GmIdle = q
-			w.warn(CodeSpotOnly, "Transconductance as given at "+amps(p.i)+".")
+			w.warn(CodeSpotOnly, "Transconductance as given at "+amps(id)+".")
 			return
 		}
 	}
@@ -200,10 +217,18 @@ func (w *work) spotGain(r *Result) {
 		return
 	}
 	d := b.vg - a.vg
-	g := (b.i - a.i) / d
-	u := rss(g*rss(w.spotU(a), w.spotU(b))/d, rss(a.u, b.u)/d)
+	rise := math.Sqrt(b.i) - math.Sqrt(math.Max(a.i, 0))
+	g := 2 * math.Sqrt(i) * rise / d
+	// A reading's own error: of the gate in the distance, of the current in its root.
+	root := func(p *point) float64 { return math.Sqrt(i/math.Max(p.i, p.u)) * p.u }
+	u := rss(g*rss(w.spotU(a), w.spotU(b))/d, rss(root(a), root(b))/d)
+	u = rss(u, rise*rise/d/spotModel)
+	// Shares of the knee: the lower reading lies below the square law, and the
+	// slope at i is smaller than its own.
+	fade := func(i float64) float64 { return math.Exp(-math.Sqrt(math.Max(i, 0)) * d / rise / spotKnee) }
+	u = rss(u, g*rss(spotKnee*(fade(a.i)-fade(b.i))/d, fade(i)))
 	r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: 2}, i, 1, 1)
-	w.warn(CodeSpotOnly, "Transconductance is the secant between "+amps(a.i)+" and "+amps(b.i)+".")
+	w.warn(CodeSpotOnly, "Transconductance is from the two spots at "+amps(a.i)+" and "+amps(b.i)+", as of a square law through both.")
 }
 
 // spotGmStep is the step of a given transconductance by its digits.

@@ -124,8 +124,12 @@ func TestTwoSpots(t *testing.T) {
 	r := One(c, s)
 	near(t, "at 5 mA", r.Vgsth.Value, 4.1, 0)
 	near(t, "at 500 mA", r.VgsIdle.Value, 5, 0)
-	near(t, "secant", r.GmIdle.Value, 0.495/0.9, 1e-12)
-	if !strings.Contains(warningText(r, CodeSpotOnly), "secant") {
+	// β = 1 A/V², 1 V of overdrive: 1 S. The chord would be 0.55 S.
+	near(t, "square-law slope", r.GmIdle.Value, 1, 1e-12)
+	if !(r.GmIdle.U > 0.02 && r.GmIdle.U < 0.4) {
+		t.Errorf("u of the slope %g S", r.GmIdle.U)
+	}
+	if !strings.Contains(warningText(r, CodeSpotOnly), "from the two spots") {
 		t.Errorf("not said: %v", r.Warnings)
 	}
 	// In between, within the stated uncertainty of 4.447 V at 100 mA.
@@ -172,5 +176,62 @@ func TestDeadSpots(t *testing.T) {
 		if diode := c.v == 0.65; r.Has(CodeWrongWayRound) != diode {
 			t.Errorf("%g V: codes %s", c.v, codesOf(r))
 		}
+	}
+}
+
+// Self-made devices read at two currents: the transconductance at the upper, the
+// lower and a middle one lies within its uncertainty.
+func TestTwoSpotGainIsHonest(t *testing.T) {
+	r := randomSource(51)
+	var upper, middle, lower honesty
+	const devices = 243
+	sum := 0.0
+	for k := range devices {
+		d := simDevice{
+			law: smoothLaw, vt: 2 + 2*r.Float64(), beta: 1 + 6*r.Float64(), n: 1.1 + 0.7*r.Float64(),
+			theta: 0.15 * r.Float64(), rs: 0.05 * r.Float64(),
+		}
+		b := simBench{circuit: Fixed, vds: 10}
+		hi := []float64{1, 0.25, 0.01}[k%3]
+		lo := hi / []float64{2, 5, 10}[k/3%3]
+		gate := func(i float64) float64 { return math.Round(d.gateFor(b, i)*1e3) / 1e3 }
+		c := Curve{Vg: []float64{gate(lo), gate(hi)}, Id: []float64{lo, hi}}
+		s := b.setup()
+		s.Spot, s.TestCurrent = true, lo
+		for i, h := range map[float64]*honesty{hi: &upper, lo: &lower, math.Sqrt(lo * hi): &middle} {
+			s.IdleCurrent = i
+			q := One(c, s).GmIdle
+			want := trueGm(d, b, d.gateFor(b, i))
+			h.add(q.Value/want-1, q.U/want)
+			if i == hi {
+				sum += math.Abs(q.Value/want - 1)
+			}
+		}
+	}
+	for _, x := range []struct {
+		what string
+		h    *honesty
+	}{{"at the upper current", &upper}, {"in the middle", &middle}, {"at the lower current", &lower}} {
+		t.Logf("%s: %s", x.what, x.h)
+		if w := x.h.within(2); w < 0.9 {
+			t.Errorf("%s: %.1f %% within 2u", x.what, 100*w)
+		}
+	}
+	if mean := sum / devices; mean > 0.12 {
+		t.Errorf("mean error at the upper current %.1f %%", 100*mean)
+	}
+}
+
+// A list may give the threshold at one current and g_m at another: the point of
+// the g_m has no gate voltage, and is no missing reading.
+func TestTransconductanceAtACurrentOfItsOwn(t *testing.T) {
+	s := unknownSetup()
+	s.Spot, s.TestCurrent, s.IdleCurrent = true, 0.01, 1
+	r := One(Curve{Vg: []float64{3.009, math.NaN()}, Id: []float64{0.01, 1}, Gm: []float64{math.NaN(), 4.55}}, s)
+	if r.State != Measured || r.Vgsth.Value != 3.009 || r.GmIdle.Value != 4.55 || r.VgsIdle.Ok() {
+		t.Errorf("%+v", r)
+	}
+	if r.Has(CodeMissingReading) || r.Has(CodeFewPoints) || len(r.LeftOut) > 0 {
+		t.Errorf("warnings %v, left out %v", r.Warnings, r.LeftOut)
 	}
 }

@@ -8,6 +8,8 @@ import (
 const (
 	// deadShare of the test current, and five counts, is no current at all.
 	deadShare = 0.01
+	// manyCounts of the meter are a current, whatever the test current.
+	manyCounts = 50
 	// wellUp is how far above its off voltage, V, the gate of an enhancement part
 	// must have been for 'no current' to mean 'open': data sheets of power and RF
 	// parts end at 4 to 5 V.
@@ -50,12 +52,10 @@ func (w *work) dead() (State, string) {
 	if w.nothingFlows() {
 		return w.openState()
 	}
-	if w.turned {
-		// The body diode's current flows the other way and the gate cannot stop it.
-		if low > 0.5*high && low > 0 && w.startsOff(offFar) {
-			return WrongWayRound, "The current flows the other way at every gate voltage: the body diode conducts, so drain and source are exchanged or the drain supply has the wrong polarity."
+	if w.turned && low < 2*high { // else it falls, as a part of the other channel does
+		if state, why := w.deadTurned(low, high); state != "" {
+			return state, why
 		}
-		w.warn(CodeSignTurned, "The readings of the current carry the other sign than an "+w.channel()+" part's; their magnitudes were used.")
 	}
 	if w.s.Circuit == Diode {
 		return w.deadDiode()
@@ -66,10 +66,63 @@ func (w *work) dead() (State, string) {
 	if low < w.s.TestCurrent/2 && !w.wentWellUp() {
 		return "", "" // a leakage, and the sweep may have ended before turn-on
 	}
-	if w.scattered() {
-		return "", ""
+	if w.scattered() || w.medianOf(n-3, n) > 2*high {
+		return "", "" // the gate moves it at the end: most of the sweep is foot
 	}
 	return w.deadOn(low, high, third)
+}
+
+// deadTurned judges a current of the other sign. Exchanged leads of the meter are
+// taken for it only where the magnitude rises from near nothing: a body diode's
+// current flows at every gate voltage. It warns sign-turned when it gives no
+// state.
+func (w *work) deadTurned(low, high float64) (State, string) {
+	n := len(w.pts)
+	begins := w.medianOf(0, min(3, n))
+	const nearNothing = 0.1
+	if begins < nearNothing*w.medianOf(max(0, n-3), n) {
+		w.warn(CodeSignTurned, "The readings of the current carry the other sign than that of "+w.channel()+" parts; their magnitudes were used.")
+		return "", ""
+	}
+	left := w.medianDrain(0, n)
+	switch {
+	case !(low > 0.5*high):
+		return Declined, "The current carries the other sign than that of " + w.channel() + " parts and is " + amps(begins) +
+			" at the first points already: exchanged leads cannot be told from a part that conducts backwards; start the sweep at the off voltage."
+	case !w.startsOff(offFar) && w.s.Circuit == Load && math.Abs(left) < diodeLow:
+		return Declined, "The current flows the other way and the load resistor takes nearly the whole supply at every gate voltage: the part is shorted or was fully on at the first point, " +
+			volts(w.gate*w.pts[0].vg) + ", with leads exchanged; start the sweep at the off voltage."
+	}
+	return WrongWayRound, "The current flows the other way at every gate voltage: the body diode conducts, so drain and source are exchanged or the drain supply has the wrong polarity."
+}
+
+// flat is the current that flows at every gate voltage alike; ok is false where
+// the gate moves it by a tenth.
+func (w *work) flat() (i float64, ok bool) {
+	n := len(w.pts)
+	if n < 3 {
+		return 0, false
+	}
+	third := max(1, n/3)
+	low, high := w.medianOf(0, third), w.medianOf(n-third, n)
+	i = w.medianOf(0, n)
+	return i, i > 0 && math.Abs(high-low) < 0.1*i && math.Abs(w.medianOf(n-3, n)-w.medianOf(0, 3)) < 0.1*i
+}
+
+// flatSentence says what a sweep may be that begins above the off voltage and
+// carries one current throughout.
+func (w *work) flatSentence(i float64) string {
+	n := len(w.pts)
+	s := "The part carries " + amps(i) + " at every gate voltage from " + volts(w.gate*w.pts[0].vg) + " on"
+	left := w.medianDrain(0, n)
+	if v := w.supplyAt(w.pts[0].k); w.s.Circuit == Load && finiteNumber(v) && i*w.s.RL > 0.9*v {
+		s += ", about all that the load resistor lets through"
+	}
+	s += ": it may be shorted, or fully on at the first point"
+	if left >= diodeLow && left <= diodeHigh {
+		s += ", or the wrong way round (" + si(left, "V") + " remain across it, as a body diode leaves)"
+	}
+	return s + "; start the sweep at the off voltage."
 }
 
 // scattered reports whether the middle half of the currents spans more than a
@@ -162,7 +215,8 @@ func (w *work) medianDrain(from, to int) float64 {
 }
 
 // nothingFlows reports whether no two points show a current: one may be a
-// spike.
+// spike. A hundredth of the test current is none, unless that is a current of
+// many counts: who asks for kiloamperes has no open part for that.
 func (w *work) nothingFlows() bool {
 	limit := 0.0
 	if positive(w.s.TestCurrent) {
@@ -171,7 +225,7 @@ func (w *work) nothingFlows() bool {
 	seen := 0
 	for j := range w.pts {
 		p := &w.pts[j]
-		if math.Abs(p.i) > math.Max(limit, 5*p.q) {
+		if i := math.Abs(p.i); i > math.Max(limit, 5*p.q) || p.q > 0 && i > manyCounts*p.q {
 			seen++
 		}
 	}

@@ -133,6 +133,9 @@ func TestDeadParts(t *testing.T) {
 				if code := stateCode(r.State); code != "" && !r.Has(code) {
 					t.Errorf("%s: no warning %s", d.name, code)
 				}
+				if r.Has(CodeCurrentMismatch) {
+					t.Errorf("%s, columns %s: %s", d.name, col, warningText(r, CodeCurrentMismatch))
+				}
 				if r.Vgsth.Ok() || r.Vt.Ok() || r.GmMax.Ok() {
 					t.Errorf("%s: a dead part has numbers", d.name)
 				}
@@ -275,8 +278,8 @@ func TestSigns(t *testing.T) {
 	p := s
 	p.PChannel = true
 	r = One(c, p) // magnitudes
-	if r.State != Measured {
-		t.Errorf("magnitudes: %s %s", r.State, r.Why)
+	if r.State != Measured || r.Has(CodeSignTurned) {
+		t.Errorf("magnitudes: %s %s %s", r.State, r.Why, codesOf(r))
 	}
 	near(t, "V_GS(th) of the p-channel part", r.Vgsth.Value, -want.Vgsth.Value, 1e-12)
 	near(t, "g_m is positive", r.GmMax.Value, want.GmMax.Value, 1e-12)

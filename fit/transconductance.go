@@ -26,18 +26,33 @@ const (
 // their slope is noise.
 type slopePoints struct {
 	x, i, u []float64 // V, A, A
+	rt, ln  []float64 // √i and ln i, NaN where i is not above zero
 	e       []float64 // V, standard deviation of x
 	from    []int     // index of the first of the points merged
 	m       int       // points in a window, odd
-	degree  int
-	least   int // points in the narrowest window that is worth a slope, odd
+	least   int       // points in the narrowest window that is worth a slope, odd
+	degree  int       // of the local polynomials
+}
+
+// ordinates are those of all points.
+func (s *slopePoints) ordinates(o ordinate) []float64 {
+	switch o {
+	case root:
+		return s.rt
+	case logarithm:
+		return s.ln
+	}
+	return s.i
 }
 
 // forSlopes merges near neighbours; e is the scatter in volts.
 func (w *work) forSlopes(e float64) slopePoints {
 	n := len(w.pts)
-	f := make([]float64, 4*n)
-	s := slopePoints{x: f[:0:n], i: f[n : n : 2*n], u: f[2*n : 2*n : 3*n], e: f[3*n : 3*n], from: make([]int, 0, n)}
+	f := make([]float64, 6*n)
+	s := slopePoints{
+		x: f[:0:n], i: f[n : n : 2*n], u: f[2*n : 2*n : 3*n], e: f[3*n : 3*n : 4*n],
+		rt: f[4*n : 4*n : 5*n], ln: f[5*n : 5*n], from: make([]int, 0, n),
+	}
 	for j := 0; j < n; {
 		// Within three standard deviations of the first of the group.
 		near := 3 * rss(e, w.pts[j].ux)
@@ -55,23 +70,68 @@ func (w *work) forSlopes(e float64) slopePoints {
 		s.from = append(s.from, j)
 		s.x = append(s.x, x/m)
 		s.i = append(s.i, i/m)
+		rt, ln := w.pts[j].rt, w.pts[j].ln
+		if m > 1 {
+			rt, ln = math.Sqrt(i/m), math.Log(i/m)
+		}
+		if !(i > 0) {
+			rt, ln = math.NaN(), math.NaN()
+		}
+		s.rt, s.ln = append(s.rt, rt), append(s.ln, ln)
 		s.u = append(s.u, math.Sqrt(uu)/m)
 		s.e = append(s.e, rss(e, w.pts[j].ux)/math.Sqrt(m))
 		j = k
 	}
 	s.degree = 2
-	s.m, s.least = s.width(e, slopeNoise, slopeWindow), s.width(e, firstNoise, slopeLeast)
+	h := s.stepWhereOn()
+	s.m, s.least = s.width(e, h, slopeNoise, slopeWindow), s.width(e, h, firstNoise, slopeLeast)
 	return s
+}
+
+// stepWhereOn is the mean step, V, of the points that carry current: how long or
+// how fine the sweep was in the off region says nothing of a slope.
+func (s *slopePoints) stepWhereOn() float64 {
+	n := len(s.x)
+	top := 0.0
+	for _, i := range s.i {
+		top = math.Max(top, i)
+	}
+	from := 0
+	for from < n-1 && s.i[from] < top/scatterRatio {
+		from++
+	}
+	if n-from < 3 { // the rise is within the last steps
+		from = max(0, n-3)
+	}
+	return (s.x[n-1] - s.x[from]) / float64(n-1-from)
+}
+
+// whereOn is the first point with two fifths of the greatest current, as far as
+// the current is not the resistor's doing: there the voltage scatter is that of
+// the gate and not of the meter's last digits. A square-law sweep from just
+// below threshold has that at two thirds of its points.
+func (w *work) whereOn() int {
+	top := 0.0
+	for j := range w.pts {
+		if !w.nearlyThrough(w.pts[j].i, j) {
+			top = math.Max(top, w.pts[j].i)
+		}
+	}
+	for j := range w.pts {
+		if w.pts[j].i >= 0.4*top {
+			return j
+		}
+	}
+	return len(w.pts) - 1
 }
 
 // width is the number of points of a window: m, more where steps are fine
 // against the scatter e for a slope of that relative noise, fewer where there
-// are no more. The slope over m points
-// a step h apart scatters by e √12 / (h m^1.5), relative to the slope itself.
-func (s *slopePoints) width(e, noise float64, m int) int {
+// are no more. The slope over m points a step h apart scatters by
+// e √12 / (h m^1.5), relative to the slope itself.
+func (s *slopePoints) width(e, h, noise float64, m int) int {
 	n := len(s.x)
 	if n > 1 && e > 0 {
-		h := (s.x[n-1] - s.x[0]) / float64(n-1)
 		if need := math.Pow(e*math.Sqrt(12)/(noise*h), 2./3); need < slopeWindowMax {
 			m = max(m, int(need))
 		} else {
@@ -89,15 +149,7 @@ func (s *slopePoints) slopeAt(p *poly, o ordinate, j, m int, x float64) (g, back
 	n := len(s.x)
 	m = min(m, n)
 	lo := max(0, min(j-m/2, n-m))
-	var y [slopeWindowMax]float64
-	for k := range m {
-		i := s.i[lo+k]
-		if o != plain && !(i > 0) {
-			return math.NaN(), math.NaN()
-		}
-		y[k] = o.of(i)
-	}
-	if !p.fit(s.x[lo:lo+m], y[:m], nil, min(s.degree, m-1)) {
+	if !p.fit(s.x[lo:lo+m], s.ordinates(o)[lo:lo+m], nil, min(s.degree, m-1)) {
 		return math.NaN(), math.NaN()
 	}
 	v, d := p.at(x)
@@ -117,9 +169,17 @@ func (s *slopePoints) slopeScatter(p *poly, o ordinate, j, m int, x, back float6
 	m = min(m, n)
 	lo := max(0, min(j-m/2, n-m))
 	var sigma [slopeWindowMax]float64
-	rise := (o.of(s.i[lo+m-1]) - o.of(s.i[lo])) / (s.x[lo+m-1] - s.x[lo])
-	for k := range m {
-		sigma[k] = rss(s.u[lo+k]*o.slope(s.i[lo+k]), rise*s.e[lo+k])
+	y := s.ordinates(o)[lo : lo+m]
+	rise := (y[m-1] - y[0]) / (s.x[lo+m-1] - s.x[lo])
+	for k, v := range y {
+		d := 1.0 // d(ordinate)/di
+		switch o {
+		case root:
+			d = 0.5 / v
+		case logarithm:
+			d = 1 / s.i[lo+k]
+		}
+		sigma[k] = rss(s.u[lo+k]*d, rise*s.e[lo+k])
 	}
 	return math.Abs(back) * p.scatter(x, sigma[:m], true)
 }
@@ -152,7 +212,7 @@ func (w *work) ordinateAt(s *slopePoints, j int) ordinate {
 	if !(s.i[a] > 0) || !(s.i[b] > s.i[a]) {
 		return plain
 	}
-	if 2*(s.x[b]-s.x[a])/math.Log(s.i[b]/s.i[a]) < knee {
+	if 2*(s.x[b]-s.x[a]) < knee*(s.ln[b]-s.ln[a]) {
 		return logarithm
 	}
 	return root
@@ -198,15 +258,12 @@ func (s *slopePoints) leaning(p *poly, o ordinate, j, m int, x, back float64) fl
 	if m-cut < 3 {
 		return 0
 	}
-	var y [slopeWindowMax]float64
-	for k := range m {
-		y[k] = o.of(s.i[lo+k])
-	}
+	y := s.ordinates(o)[lo : lo+m]
 	if !p.fit(s.x[lo:lo+m-cut], y[:m-cut], nil, 2) {
 		return 0
 	}
 	_, left := p.at(x)
-	if !p.fit(s.x[lo+cut:lo+m], y[cut:m], nil, 2) {
+	if !p.fit(s.x[lo+cut:lo+m], y[cut:], nil, 2) {
 		return 0
 	}
 	_, right := p.at(x)
@@ -218,23 +275,25 @@ func (s *slopePoints) leaning(p *poly, o ordinate, j, m int, x, back float64) fl
 //
 // g_m = dI_D/dV_GS by local polynomials over seven points, more where steps are
 // fine against the noise (non-uniform steps allowed), in I, √I or ln I by
-// region: parabolas for the greatest slope, cubics at the idle current, where
-// the window grows while the slopes agree. Points
-// nearer than three times the gate uncertainty are merged; the points at either
-// end, where the window is one-sided, are no candidates for the maximum, nor are points with more than
-// half of V_DD across R_L. In the load circuit it is the slope of the circuit,
+// region: parabolas find the place of the greatest slope; its value, and the slope
+// at the idle current, are those of cubics whose window grows while the slopes
+// agree. Points nearer than three times the gate uncertainty are merged; that is
+// taken where the current is, for below threshold the voltage scatter is only the
+// meter's last digits over a slope of nothing. The points at either end, where the
+// window is one-sided, are no candidates for the maximum, nor are points with more
+// than half of V_DD across R_L. In the load circuit it is the slope of the circuit,
 // dI/dV_G, which falls below g_m where the drain voltage collapses.
 //
 // Source: A. Savitzky and M. J. E. Golay, Anal. Chem. 36 (1964) 1627–1639, for
 // non-uniform steps W. S. Cleveland, J. Am. Stat. Assoc. 74 (1979) 829–836 (both
-// from memory). Checked: TestSavitzkyGolay, TestTransconductance.
+// from memory). Checked: TestSavitzkyGolay, TestTransconductance,
+// TestTransconductanceFromFarBelow.
 func (w *work) transconductances(r *Result, idle crossing) {
 	n := len(w.pts)
 	if n < 3 {
 		return
 	}
-	e := w.scatterNear(n * 2 / 3)
-	s := w.forSlopes(e)
+	s := w.forSlopes(w.scatterNear(w.whereOn()))
 	n = len(s.x)
 	if n < 3 {
 		return
@@ -251,12 +310,17 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		}
 	}
 	if at >= 0 && best > 0 {
-		g, u, used := s.widen(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at])
-		_, back := s.slopeAt(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at])
+		o := w.ordinateAt(&s, at)
+		_, back := s.slopeAt(&w.poly, o, at, width, s.x[at])
+		chance := s.slopeScatter(&w.poly, o, at, width, s.x[at], back)
+		s.degree = 3 // few points hold the whole bend of a knee at coarse steps
+		g, u, used := s.widen(&w.poly, o, at, min(width, s.least), s.x[at])
 		// The greatest of many is great by chance as well: the scatter of one of
 		// them is left in.
-		u = rss(u, s.slopeScatter(&w.poly, w.ordinateAt(&s, at), at, width, s.x[at], back))
+		u = rss(u, chance)
 		r.GmMax = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, s.i[at], 1, 1)
+		// Within a window of the end nothing shows that it falls again.
+		r.GmRising = at >= n-m/2-1-m
 	}
 	if math.IsNaN(idle.v) {
 		return

@@ -55,3 +55,33 @@ func places(vg []float64) string {
 }
 
 func number4(x float64) string { return strconv.FormatFloat(x, 'g', 4, 64) }
+
+// keyWords names the quantities as sentences do.
+var keyWords = map[Key]string{
+	KeyVgsth:   "V_GS(th)",
+	KeyVgsIdle: "gate bias at the idle current",
+	KeyVt:      "extrapolated threshold",
+	KeyBeta:    "gain factor",
+	KeyTheta:   "mobility degradation",
+	KeyGmMax:   "largest transconductance",
+	KeyGmIdle:  "transconductance at the idle current",
+	KeyIdss:    "drain leakage",
+}
+
+// spoken writes a value of that key with its unit.
+func spoken(k Key, x float64) string {
+	switch k {
+	case KeyVgsth, KeyVgsIdle, KeyVt:
+		return strconv.FormatFloat(x, 'f', 4, 64) + " V"
+	case KeyBeta:
+		return number4(x) + " A/V²"
+	case KeyTheta:
+		return number4(x) + " 1/V"
+	case KeyIdss:
+		return amps(x)
+	}
+	return si(x, "S")
+}
+
+// capital begins a sentence.
+func capital(s string) string { return strings.ToUpper(s[:1]) + s[1:] }

@@ -36,11 +36,13 @@ type work struct {
 	hopeless bool    // more points contradict each other than can be dropped
 	falling  bool    // the current falls as the gate is driven harder
 
-	pts   []point // usable points in the order in which the part turns on
-	grid  float64 // V, step that the digits of the gate readings show; 0: none
-	poly  poly    // scratch
-	left  []LeftOut
-	warns []Warning
+	pts       []point      // usable points in the order in which the part turns on
+	grid      float64      // V, step that the digits of the gate readings show; 0: none
+	poly      poly         // scratch
+	win       window       // scratch
+	residuals [][2]float64 // squares and their known parts, V²; a known part below zero: none
+	left      []LeftOut
+	warns     []Warning
 }
 
 // point is one usable point, with the signs of an n-channel part.
@@ -114,13 +116,14 @@ func (w *work) orient() {
 		w.gate = 1 // V_SG was written down
 	}
 	w.current, w.load, w.drain = w.sign, w.sign, w.sign
+	magnitudes := w.gate != w.sign // then those of the current say nothing of its direction
 	if w.sign*greatest(w.c.Id) < 0 {
 		w.current = -w.sign
-		w.turned = true
+		w.turned = !magnitudes
 	}
 	if w.sign*greatest(w.c.Vl) < 0 {
 		w.load = -w.sign
-		w.turned = w.turned || w.c.Id == nil
+		w.turned = w.turned || w.c.Id == nil && !magnitudes
 	}
 	if w.sign*greatest(w.c.Vd) < 0 {
 		w.drain = -w.sign
@@ -179,7 +182,9 @@ func (w *work) gather() {
 	for k := range n {
 		vg := w.c.Vg[k]
 		if !finiteNumber(vg) {
-			w.leaveUnread(k, vg)
+			if math.IsInf(vg, 0) || !positive(math.Abs(at(w.c.Gm, k))) { // else a transconductance given for itself
+				w.leaveUnread(k, vg)
+			}
 			continue
 		}
 		p := point{k: k, vg: w.gate * vg, a: math.NaN(), l: math.NaN()}

@@ -48,6 +48,12 @@ func FitTable(w io.Writer, s Sheet, style Style) error {
 	dropped := p.grid(fitGrid(s, style))
 	p.line("")
 	wrapped(p, "", "  ", "± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.", style.Width)
+	leakage := KeyOf(fit.KeyIdss).Symbol
+	if i := slices.Index(dropped, leakage); i >= 0 {
+		dropped[i] = SymbolWords(fit.KeyIdss)
+	} else if slices.ContainsFunc(s.Devices, func(d Device) bool { return d.Result.Idss.Ok() }) {
+		wrapped(p, "", "  ", LeakageNote, style.Width)
+	}
 	if len(dropped) > 0 {
 		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
@@ -70,7 +76,7 @@ func fitGrid(s Sheet, style Style) grid {
 			methods[i] = Clean(d.Result.Method)
 		}
 		var own []string
-		for _, w := range d.Result.Warnings {
+		for _, w := range beyondState(d) {
 			if !slices.Contains(common, w.Code) && !slices.Contains(own, w.Code) {
 				own = append(own, w.Code)
 			}
@@ -121,39 +127,6 @@ func stateCell(d *Device, style Style) string {
 	return style.paint(word, red)
 }
 
-// notMeasured says for every device without a value why it has none.
-func notMeasured(p *printer, s Sheet, style Style) {
-	type group struct {
-		state fit.State
-		lines []string
-	}
-	var groups []group
-	for _, state := range []fit.State{fit.Above, fit.Open, fit.Shorted, fit.WrongWayRound, fit.Declined, fit.Excluded, ""} {
-		g := group{state: state}
-		for _, d := range s.Devices {
-			if d.State() == state {
-				g.lines = append(g.lines, fmt.Sprintf("%s: %s", Clean(d.Name), Clean(Sentence(d.Reason()))))
-			}
-		}
-		if len(g.lines) > 0 {
-			groups = append(groups, g)
-		}
-	}
-	if len(groups) == 0 {
-		return
-	}
-	p.line("")
-	p.line("%s", style.paint("Without a value", bold))
-	for _, g := range groups {
-		for _, l := range g.lines {
-			wrapped(p, "  ", "    ", l, style.Width)
-		}
-		if next := WordsOf(g.state).Next; next != "" {
-			wrapped(p, "    next: ", "    ", next, style.Width)
-		}
-	}
-}
-
 // commonCodes lists the warning codes that every measured device carries: they
 // are said once.
 func commonCodes(s Sheet) []string {
@@ -199,12 +172,16 @@ type RemarkGroup struct {
 // RemarkGroups gathers the warnings of the devices by code, in order of the
 // code.
 func (s *Sheet) RemarkGroups() []RemarkGroup {
+	return s.remarkGroups(func(d *Device) []fit.Warning { return d.Result.Warnings })
+}
+
+func (s *Sheet) remarkGroups(warnings func(*Device) []fit.Warning) []RemarkGroup {
 	byCode := map[string]*RemarkGroup{}
 	texts := map[string]string{}
 	common := commonCodes(*s)
 	for i := range s.Devices {
 		d := &s.Devices[i]
-		for _, w := range d.Result.Warnings {
+		for _, w := range warnings(d) {
 			g := byCode[w.Code]
 			if g == nil {
 				advice := s.Advice(w.Code)
@@ -230,8 +207,10 @@ func (s *Sheet) RemarkGroups() []RemarkGroup {
 	return list
 }
 
+// remarks follow the reasons of devices without a value: they do not say those
+// again.
 func remarks(p *printer, s Sheet, style Style) {
-	groups := s.RemarkGroups()
+	groups := s.remarkGroups(beyondState)
 	if len(groups) == 0 {
 		return
 	}
@@ -249,16 +228,6 @@ func remarks(p *printer, s Sheet, style Style) {
 		wrapped(p, "  ", "    ", head, style.Width)
 		if g.Next != "" {
 			wrapped(p, "    next: ", "    ", Clean(g.Next), style.Width)
-		}
-	}
-}
-
-// warnings writes warnings of the lot as a whole.
-func lotWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
-	for _, w := range list {
-		wrapped(p, "", "  ", fmt.Sprintf("%s (%s)", Clean(Sentence(w.Text)), Clean(w.Code)), style.Width)
-		if next := s.Advice(w.Code).Next; next != "" {
-			wrapped(p, "  next: ", "  ", Clean(next), style.Width)
 		}
 	}
 }

@@ -52,7 +52,8 @@ func ImportJSON(w io.Writer, doc ImportDoc) error {
 	return writeObject(w, member{"schema", Schema}, member{"lot", doc.Lot}, member{"files", files})
 }
 
-// ImportTable writes the fate of each file for people.
+// ImportTable writes the fate of each file for people. Why a file was refused
+// is not said here: that is told as an error while the files are read.
 func ImportTable(w io.Writer, doc ImportDoc, style Style) error {
 	p := &printer{w: w}
 	p.line("Lot %s", Clean(doc.Lot))
@@ -69,7 +70,7 @@ func ImportTable(w io.Writer, doc ImportDoc, style Style) error {
 		{head: "points", cells: points, right: true}, {head: "rows refused", cells: refused, right: true},
 	}})
 	for _, f := range doc.Files {
-		if f.Reason != "" {
+		if f.Reason != "" && f.Fate != FateRefused {
 			wrapped(p, "  ", "    ", Clean(f.File)+": "+Clean(f.Reason), style.Width)
 		}
 	}

@@ -120,3 +120,8 @@ func CodesJSON(w io.Writer, codes []fit.CodeInfo) error {
 	}
 	return writeObject(w, member{"schema", Schema}, member{"codes", docs})
 }
+
+// BackupJSON tells where a copy of the store was written.
+func BackupJSON(w io.Writer, store, file string) error {
+	return writeObject(w, member{"schema", Schema}, member{"store", store}, member{"file", file})
+}

@@ -180,7 +180,7 @@ func DeviceHistory(w io.Writer, f DeviceFile, s Sheet, style Style) error {
 	}
 	for _, k := range fit.Keys {
 		if q := d.Result.At(k); q.Ok() {
-			p.line("%-22s %s", KeyOf(k).Symbol, FormatQuantity(*q, KeyOf(k).Unit))
+			wrapped(p, fmt.Sprintf("%-22s ", SymbolWords(k)), strings.Repeat(" ", 23), FormatWithAbsolute(*q, KeyOf(k).Unit), style.Width)
 		}
 	}
 	p.line("")

@@ -165,6 +165,34 @@ func FormatQuantity(q fit.Quantity, unit string) string {
 	return text
 }
 
+// FormatWithAbsolute writes a quantity with both uncertainties that are known,
+// "2.78010 V (n = 4), ± 0.50 mV in the session, ± 9.0 mV absolute": what tells
+// devices of one lot apart, and what counts against a data sheet. Where the
+// absolute one is not known it is [FormatQuantity].
+func FormatWithAbsolute(q fit.Quantity, unit string) string {
+	if !q.Ok() || math.IsInf(q.Value, 0) || !(q.UAbsolute > 0) || math.IsInf(q.UAbsolute, 0) {
+		return FormatQuantity(q, unit)
+	}
+	u := q.U
+	if !(u > 0) || math.IsInf(u, 0) {
+		u = q.UAbsolute
+	}
+	s := ScaleOf(unit, max(math.Abs(q.Value), u))
+	text := withUnit(s.FormatNumber(q.Value, u, 0), s.Unit(unit))
+	if q.N > 0 {
+		text += " (n = " + strconv.Itoa(q.N) + ")"
+	}
+	su := ScaleOf(unit, q.UAbsolute) // one prefix for both, so that they can be compared
+	size := func(u float64) string {
+		d, _ := DecimalsFor(su.Of(u))
+		return withUnit(fixed(su.Of(u), d), su.Unit(unit))
+	}
+	if u == q.U {
+		text += ", ± " + size(q.U) + " in the session"
+	}
+	return text + ", ± " + size(q.UAbsolute) + " absolute"
+}
+
 // FormatPlain writes a number with its uncertainty, where known, and its unit:
 // "2.7801 ± 0.0005 V", "250 mA".
 func FormatPlain(x, u float64, unit string) string {

@@ -32,6 +32,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "", "How narrow a bin may be is not known: no uncertainty of the readings is known.", style.Width)
 	}
 	lotWarnings(p, s, srt.Warnings, style)
+	doubts(p, s, style)
 	p.line("")
 	if g := placedGrid(srt, style); len(g.cols[0].cells) > 0 {
 		p.grid(g)
@@ -43,8 +44,8 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	if left := s.Unsorted(); len(left) > 0 {
 		p.line("")
 		p.line("%s", style.paint(fmt.Sprintf("In no bin: %d", len(left)), bold))
-		for _, u := range left {
-			wrapped(p, "  ", "    ", Clean(u.Name)+": "+Clean(Sentence(u.Why)), style.Width)
+		for _, g := range GroupNames(left) {
+			wrapped(p, "  ", "    ", namesWords(g.Names, shownNames)+": "+Clean(Sentence(g.Text)), style.Width)
 		}
 	}
 	return p.err
@@ -118,11 +119,11 @@ func binGrid(srt *lot.Sorting, style Style) grid {
 	sc := BinScale(srt)
 	unit := sc.Unit(KeyOf(srt.By).Unit)
 	var names, lows, highs, counts []string
-	for _, b := range srt.Bins {
+	for _, b := range BinRows(srt) {
 		names = append(names, Clean(b.Name))
 		lows = append(lows, EdgeText(srt, sc, b.Low))
 		highs = append(highs, EdgeText(srt, sc, b.High))
-		counts = append(counts, itoa(len(b.Devices)))
+		counts = append(counts, b.Count())
 	}
 	return grid{style: style, cols: []column{
 		{head: "bin", cells: names}, {head: "from", unit: unit, cells: lows, right: true},

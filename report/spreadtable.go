@@ -51,6 +51,8 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	}
 	lotWarnings(p, s, warnings, style)
 	flags(p, s, style)
+	doubts(p, s, style)
+	notMeasured(p, s, style)
 	return p.err
 }
 
@@ -66,7 +68,7 @@ func spreadKeys(sp lot.Spread) []fit.Key {
 }
 
 // StandardError is the standard uncertainty of the mean of a summary, sd/√n;
-// NaN where it cannot be had. It decides the digits in which a spread is shown.
+// NaN where it cannot be had. It decides the digits of mean and sd.
 func StandardError(m lot.Summary) float64 {
 	if m.N < 2 || !(m.SD > 0) {
 		return math.NaN()
@@ -74,9 +76,34 @@ func StandardError(m lot.Summary) float64 {
 	return m.SD / math.Sqrt(float64(m.N))
 }
 
-// SummaryScale is the prefix for all numbers of one summary.
+// SummaryDigits is the uncertainty that decides the digits of median, robust
+// sd, least and greatest: the smaller of sd/√n and robust sd/√n, so that one
+// value far off does not take the digits from all others. NaN where neither can
+// be had.
+func SummaryDigits(m lot.Summary) float64 {
+	se := StandardError(m)
+	if m.N < 2 || !(m.RobustSD > 0) {
+		return se
+	}
+	robust := m.RobustSD / math.Sqrt(float64(m.N))
+	if se < robust {
+		return se
+	}
+	return robust
+}
+
+// SummaryScale is the prefix for all numbers of one summary: that of the median,
+// or of the robust sd where the median lies within it. Mean and greatest value,
+// which one value far off moves, have a say only where there is no median.
 func SummaryScale(k fit.Key, m lot.Summary) Scale {
-	return ScaleOf(KeyOf(k).Unit, m.Median, m.Mean, m.Max)
+	size := math.Abs(m.Median)
+	if m.RobustSD > size {
+		size = m.RobustSD
+	}
+	if size > 0 && isNumber(size) {
+		return ScaleOf(KeyOf(k).Unit, size)
+	}
+	return ScaleOf(KeyOf(k).Unit, m.Mean, m.Max)
 }
 
 // limitScale is the prefix for limits: that of the summary beside them, or
@@ -92,7 +119,7 @@ func limitScale(k fit.Key, m lot.Summary, l lot.Limit) Scale {
 // beside them, and the unit with its prefix.
 func LimitTexts(k fit.Key, m lot.Summary, l lot.Limit) (low, high, unit string) {
 	sc := limitScale(k, m, l)
-	se := StandardError(m)
+	se := SummaryDigits(m)
 	if !isNumber(se) {
 		se = (l.High - l.Low) / 8 // no spread to go by: two digits of a quarter of half the range
 	}
@@ -107,7 +134,9 @@ func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
 		m := s.Spread.Summary[k]
 		sc := SummaryScale(k, m)
 		se := StandardError(m)
-		num := func(x float64) string { return sc.FormatNumber(x, se, 0) }
+		step := SummaryDigits(m)
+		num := func(x float64) string { return sc.FormatNumber(x, step, 0) }
+		plain := func(x float64) string { return sc.FormatNumber(x, se, 0) }
 		seText := NotAvailable
 		if d, ok := DecimalsFor(sc.Of(se)); ok {
 			seText = fixed(sc.Of(se), d)
@@ -115,7 +144,7 @@ func summaryGrid(s Sheet, keys []fit.Key, style Style) grid {
 		names = append(names, s.KeyPhrase(k))
 		units = append(units, sc.Unit(KeyOf(k).Unit))
 		for i, text := range []string{
-			strconv.Itoa(m.N), strconv.Itoa(m.Above), num(m.Median), num(m.RobustSD), num(m.Mean), seText, num(m.SD), num(m.Min), num(m.Max),
+			strconv.Itoa(m.N), strconv.Itoa(m.Above), num(m.Median), num(m.RobustSD), plain(m.Mean), seText, plain(m.SD), num(m.Min), num(m.Max),
 		} {
 			cells[i] = append(cells[i], text)
 		}
@@ -174,7 +203,7 @@ func flags(p *printer, s Sheet, style Style) {
 		}
 		name := Clean(v.Name)
 		for _, r := range v.Reasons {
-			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(Sentence(r.Text)), Clean(r.Code)), style.Width)
+			wrapped(p, "  "+style.paint(name, red)+": ", "    ", fmt.Sprintf("%s (%s)", Clean(s.ReasonText(r)), Clean(r.Code)), style.Width)
 		}
 		if len(v.Reasons) == 0 {
 			p.line("  %s", style.paint(name, red))

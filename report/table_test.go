@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"flag"
 	"io"
+	"math"
 	"os"
 	"path/filepath"
 	"strings"
@@ -42,6 +43,7 @@ func files(w io.Writer, s report.Sheet, style report.Style) error {
 	return report.ImportTable(w, report.ImportDoc{Lot: s.Lot.Name, Files: []report.ImportFile{
 		{File: "a.csv", Fate: report.FateStored, Layout: "long", Devices: 6, Sweeps: 6, Points: 180},
 		{File: s.Devices[0].Name + ".csv", Fate: report.FateRefused, Reason: "line 3: 1,234 may be 1.234 or 1234"},
+		{File: "b.csv", Fate: report.FateSeen, Layout: "long", Reason: "the same readings came with a.csv"},
 	}}, style)
 }
 
@@ -144,21 +146,71 @@ func TestHostileNamesOnTheTerminal(t *testing.T) {
 	}
 }
 
-// A number that could not be had is n/a, or above, and the reason stands below.
+// A number that could not be had is n/a, or above, and state and reason stand
+// below, whether or not other devices of the lot have a value.
 func TestWhatCouldNotBeHadHasItsReason(t *testing.T) {
 	s := invented.Lot(invented.Options{Devices: 20, Points: 30, Seed: 1})
-	text := show(t, report.FitTable, s, report.Style{})
+	text, spread := show(t, report.FitTable, s, report.Style{}), show(t, report.SpreadTable, s, report.Style{})
 	for _, d := range s.Devices {
 		if d.State() == fit.Measured {
 			continue
 		}
-		require.Contains(t, text, "  "+d.Name+": "+report.Sentence(d.Reason()), "no reason for %s", d.State())
+		who := d.Name + " (" + report.WordsOf(d.State()).Word + "): "
+		if d.State() == fit.Excluded {
+			who = d.Name + ": "
+		}
+		require.Contains(t, text, "  "+who+report.Sentence(d.Reason()), "no reason for %s", d.State())
+		require.Contains(t, spread, "  "+who+report.Sentence(d.Reason()), "no reason for %s beside the spread", d.State())
 		if d.State() == fit.Above {
 			require.Regexp(t, `(?m)^`+d.Name+` +above +above`, text)
 		}
 	}
 	require.NotContains(t, text, "NaN")
 	require.NotContains(t, text, "Inf")
+}
+
+// Why a file was refused has been told as an error; why one was not read again
+// is told here.
+func TestImportTellsReasonsOnce(t *testing.T) {
+	text := show(t, files, invented.Lot(invented.Options{Devices: 1, Points: 3}), report.Style{})
+	require.Contains(t, text, "D1.csv  refused")
+	require.NotContains(t, text, "may be 1.234")
+	require.Contains(t, text, "\n  b.csv: the same readings came with a.csv\n")
+}
+
+// The current at the off voltage is not called I_DSS, which of a depletion part
+// is the current at V_GS = 0 (common data-sheet usage); programs keep their key.
+func TestDrainLeakageHasItsWords(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 20, Points: 30, Seed: 1})
+	for name, l := range layouts {
+		require.NotContains(t, show(t, l, s, report.Style{}), "I_DSS", name)
+	}
+	require.Contains(t, show(t, report.FitTable, s, report.Style{}), "\n"+report.LeakageNote+"\n")
+	narrow := show(t, report.FitTable, s, report.Style{Width: 80})
+	require.Contains(t, narrow, "drain leakage I_D(off)")
+	require.NotContains(t, narrow, report.LeakageNote, "a note on a column that is not there")
+	require.Contains(t, show(t, report.SpreadTable, s, report.Style{}), "\ndrain leakage I_D(off) ")
+	require.Contains(t, show(t, history, s, report.Style{}), "\ndrain leakage I_D(off) 2.07 µA (n = 3), ± ")
+	var b bytes.Buffer
+	require.NoError(t, report.FitJSON(&b, s))
+	require.Contains(t, b.String(), `"idss_A"`)
+}
+
+// Beside the uncertainty within the session stands the absolute one, where it is
+// known.
+func TestBothUncertainties(t *testing.T) {
+	nan := math.NaN()
+	for want, q := range map[string]fit.Quantity{
+		"2.78013 V (n = 4), ± 0.50 mV in the session, ± 9.0 mV absolute": {Value: 2.780134, U: 0.0005, UAbsolute: 0.009, N: 4},
+		"2.78013 ± 0.00050 V (n = 4)":                                    {Value: 2.780134, U: 0.0005, UAbsolute: nan, N: 4},
+		"2.7801 V, ± 9.0 mV absolute":                                    {Value: 2.780134, U: nan, UAbsolute: 0.009},
+		"-3.1200 V (n = 1), ± 2.9 mV in the session, ± 14 mV absolute":   {Value: -3.12, U: 0.0029, UAbsolute: 0.014, N: 1},
+		"n/a": fit.None(),
+	} {
+		require.Equal(t, want, report.FormatWithAbsolute(q, "V"))
+	}
+	s := invented.Lot(invented.Options{Devices: 20, Points: 30, Seed: 1})
+	require.Contains(t, show(t, history, s, report.Style{}), "V_GS(th)               2.85784 V (n = 4), ± 0.69 mV in the session, ± 8.8 mV absolute\n")
 }
 
 func TestPChannelKeepsItsSigns(t *testing.T) {

@@ -27,7 +27,7 @@ var keyInfos = map[fit.Key]KeyInfo{
 	fit.KeyTheta:   {"theta", "1/V", "per_V", "mobility degradation"},
 	fit.KeyGmMax:   {"g_m(max)", "S", "S", "greatest transconductance"},
 	fit.KeyGmIdle:  {"g_m(idle)", "S", "S", "transconductance at the idle current"},
-	fit.KeyIdss:    {"I_DSS", "A", "A", "drain leakage"},
+	fit.KeyIdss:    {"I_D(off)", "A", "A", "drain leakage"},
 	keySpan:        {"gate span", "V", "V", "gate span from the test current to the idle current"},
 }
 
@@ -124,6 +124,20 @@ func (d Device) State() fit.State {
 	return d.Result.State
 }
 
+// SymbolWords is the symbol of a quantity, with words before it where the symbol
+// alone would be misread: the current at the off voltage is no I_DSS, which of a
+// depletion part is the current at V_GS = 0.
+func SymbolWords(k fit.Key) string {
+	info := KeyOf(k)
+	if k == fit.KeyIdss {
+		return info.Name + " " + info.Symbol
+	}
+	return info.Symbol
+}
+
+// LeakageNote explains the symbol where it stands alone.
+const LeakageNote = "I_D(off) is the drain leakage: the drain current at the off voltage."
+
 // KeyPhrase names a quantity of this lot with its current:
 // "V_GS(th) at 1 mA", "V_GS at the idle current of 250 mA".
 func (s *Sheet) KeyPhrase(k fit.Key) string {
@@ -136,6 +150,8 @@ func (s *Sheet) KeyPhrase(k fit.Key) string {
 		return "V_GS at the idle current" + of(s.IdleCurrent)
 	case fit.KeyGmIdle:
 		return "g_m at the idle current" + of(s.IdleCurrent)
+	case fit.KeyIdss:
+		return SymbolWords(k)
 	}
 	return KeyOf(k).Symbol
 }

@@ -152,8 +152,8 @@ func (r *reader) signature() string {
 	return hex.EncodeToString(sum[:16])
 }
 
-// mapColumns decides what every column is taken for: --map first, then what was
-// settled for this header earlier, then the headers.
+// mapColumns decides what every column is taken for: --map first, then the
+// headers; where they leave it open, what was settled for this header earlier.
 func (r *reader) mapColumns() error {
 	claimed := map[string]bool{}
 	if err := r.take(r.opt.Map, "--map", claimed); err != nil {
@@ -164,18 +164,8 @@ func (r *reader) mapColumns() error {
 			return err
 		}
 	}
-	if r.opt.Remembered != nil && r.headerLine > 0 {
-		if known, ok := r.opt.Remembered(r.file.Dialect.Signature); ok {
-			fresh := map[string]string{}
-			for k, v := range known {
-				if name, err := r.shortName(k); err == nil && !claimed[name] {
-					fresh[k] = v
-				}
-			}
-			if err := r.take(fresh, "remembered", claimed); err != nil {
-				return err
-			}
-		}
+	if err := r.takeRemembered(claimed); err != nil {
+		return err
 	}
 	if r.headerLine == 0 {
 		return r.placeColumns(claimed)
@@ -203,6 +193,9 @@ func (r *reader) take(m map[string]string, how string, claimed map[string]bool) 
 		c := &r.cols[j]
 		if c.how != "" && c.as != name {
 			return r.refused(r.headerLine, "column %s is mapped to %s and to %s", c.title(), c.as, name)
+		}
+		if err := r.checkMapUnit(c, name, how); err != nil {
+			return err
 		}
 		c.as, c.how = name, how
 		if dim := dimOf(name); dim != "" && c.hasUnit {

@@ -42,6 +42,10 @@ var condTexts = []struct {
 // gives it to every sweep.
 func (r *reader) settleConditions() {
 	r.readTalk()
+	r.settleChannel()
+	for _, u := range r.unread {
+		r.note("line %d: %s looks like a condition and cannot be read", u.line, u.text)
+	}
 	cond, given := r.talkCond, r.opt.Given
 	for _, f := range condNumbers {
 		have, ok := f.at(&cond).Get()

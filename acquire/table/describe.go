@@ -2,9 +2,7 @@ package table
 
 import (
 	"bytes"
-	"fmt"
 	"slices"
-	"strings"
 
 	"gatesill/store/record"
 )
@@ -146,43 +144,4 @@ func lively(s *Sweep) bool {
 		}
 	}
 	return false
-}
-
-// checkOneColumn asks about a file that is nothing but numbers like 1,234: one
-// number with a decimal comma, one with a mark between thousands, or two
-// numbers.
-func (r *reader) checkOneColumn() error {
-	if r.headerLine > 0 || r.delim != ',' || r.opt.Delimiter != "" {
-		return nil
-	}
-	example := ""
-	for _, s := range r.body {
-		var e evidence
-		e.see(s.row)
-		if len(s.cells) != 2 || e.weakComma != 1 {
-			return nil
-		}
-		if example == "" {
-			example = string(trim(s.row))
-		}
-	}
-	switch r.opt.Decimal {
-	case "":
-		point, whole := strings.Replace(example, ",", ".", 1), strings.Replace(example, ",", "", 1)
-		answer, err := r.ask(Question{
-			Text:    fmt.Sprintf("%s may be the number %s, the number %s, or two columns", example, point, whole),
-			Choices: []string{"decimal comma", "decimal point", "delimiter comma"}, Flag: "--decimal or --delimiter",
-		}, r.bodyLine, "--decimal comma ("+point+"), --decimal point ("+whole+") or --delimiter comma (two columns)")
-		if err != nil {
-			return err
-		}
-		if answer == "delimiter comma" {
-			r.opt.Delimiter = "comma"
-			return nil
-		}
-		r.opt.Decimal = strings.TrimPrefix(answer, "decimal ")
-	}
-	r.delim = 0
-	r.headings, r.headerLine, r.unitLine, r.unitCells, r.talk = nil, 0, 0, nil, nil
-	return r.findHeader()
 }

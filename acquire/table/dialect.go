@@ -201,7 +201,7 @@ func (r *reader) findDelimiter() error {
 			best, r.delim, r.marks = score, d.char, marks
 		}
 	}
-	if best <= 0 {
+	if best <= 0 || r.delim == ' ' && numbersWithUnits(r.sample(' ', r.marks)) {
 		r.delim = 0
 		r.marks = r.commentMarks(0)
 	}

@@ -189,7 +189,7 @@ func TestDecimalMarkAmbiguous(t *testing.T) {
 func TestOneColumnOfThousands(t *testing.T) {
 	text := "1,234\n1,250\n1,300\n"
 	wantError(t, "x.csv", text, Options{}, ErrAmbiguous, "the number 1.234, the number 1234, or two columns", "--delimiter comma")
-	wantError(t, "x.csv", text, Options{Decimal: "comma", SpotCurrent: ten()}, ErrAmbiguous, "do not tell", "--map")
+	wantError(t, "x.csv", text, Options{Decimal: "comma", SpotCurrent: ten()}, ErrAmbiguous, "no unit for column 1", "--units vg=V")
 	var asked []Question
 	_, err := Read("x.csv", strings.NewReader(text), Options{Ask: func(q Question) (string, error) {
 		asked = append(asked, q)

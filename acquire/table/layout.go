@@ -43,12 +43,12 @@ func (r *reader) findLayout() error {
 			device.as = string(RoleIgnore)
 			device = nil
 		}
-		if device == nil {
+		if device == nil && !r.bySides() {
 			r.layout = layoutPerDevice
 			return r.fileDevice()
 		}
 		r.layout = layoutLong
-	case spots, device != nil && r.spotCurrent().IsKnown():
+	case spots, (device != nil || len(free) == 0) && r.spotCurrent().IsKnown():
 		return r.spotLayout(device)
 	case device == nil && len(free) > 0:
 		r.layout = layoutWide
@@ -67,7 +67,7 @@ func (r *reader) findLayout() error {
 func (r *reader) askCurrent(device *column, free []*column) error {
 	const text = "there is a gate voltage, but no current: at which current was it read?"
 	const hint = "--spot-current 10mA, or --map id=COLUMN"
-	if device == nil || len(free) > 0 {
+	if len(free) > 0 {
 		return r.ambiguous(r.headerLine, hint, text)
 	}
 	answer, err := r.ask(Question{Text: text, Flag: "--spot-current"}, r.headerLine, hint)
@@ -112,7 +112,7 @@ func (r *reader) askGate() error {
 		}
 	}
 	if r.opt.Ask == nil || len(list) == 0 {
-		return r.ambiguous(r.headerLine, "--map vg=COLUMN,id=COLUMN", "%s", text)
+		return r.ambiguous(r.headerLine, r.gateHint(list), "%s", text)
 	}
 	c, err := r.askColumn("vg", list, text)
 	if err != nil {
@@ -120,6 +120,17 @@ func (r *reader) askGate() error {
 	}
 	c.as, c.how = "vg", "asked"
 	return r.findLayout()
+}
+
+// gateHint is what settles which column is the gate voltage.
+func (r *reader) gateHint(list []*column) string {
+	switch {
+	case len(list) != 1:
+		return "--map vg=COLUMN,id=COLUMN"
+	case r.spotCurrent().IsKnown():
+		return fmt.Sprintf("--map vg=%d", list[0].index+1)
+	}
+	return fmt.Sprintf("--map vg=%d --spot-current 10mA", list[0].index+1)
 }
 
 // drop leaves columns out and says so.
@@ -204,19 +215,38 @@ func (r *reader) fileDevice() error {
 	return nil
 }
 
+// numberDevices names the devices of a spot list without device column by their
+// rows: 1, 2, ... in the order of the file. A row that is refused keeps its
+// number. The device of a single row is named as that of a file is.
+func (r *reader) numberDevices() error {
+	if len(r.body) == 1 && (r.talkDevice != "" || strings.Trim(r.file.Name, "-") != "") {
+		return r.fileDevice()
+	}
+	r.numbered = true
+	r.note("no column names the devices: they are numbered by their rows, 1, 2, ... in the order of the file")
+	return nil
+}
+
 // spotCurrent is the current of gate voltages that have none in their header.
 func (r *reader) spotCurrent() record.Num {
 	return r.opt.SpotCurrent.Else(r.opt.Given.SpotCurrent).Else(r.talkCond.SpotCurrent)
 }
 
+// bySides names the devices by package and side where both have a column and
+// nothing else names them.
+func (r *reader) bySides() bool {
+	r.sided = r.first(string(RolePackage)) != nil && r.first(string(RoleSide)) != nil
+	if r.sided {
+		r.note("no column names the devices: they are named by package and side, P1A, P1B, ...")
+	}
+	return r.sided
+}
+
 // spotLayout settles the currents of the spot columns.
 func (r *reader) spotLayout(device *column) error {
 	r.layout = layoutSpot
-	if device == nil {
-		if len(r.body) > 1 {
-			return r.ambiguous(r.headerLine, "--map device=COLUMN", "the spots have no device column")
-		}
-		if err := r.fileDevice(); err != nil {
+	if device == nil && !r.bySides() {
+		if err := r.numberDevices(); err != nil {
 			return err
 		}
 	}

@@ -247,7 +247,6 @@ func TestLayoutAmbiguous(t *testing.T) {
 		{"no current", "device,vg_V\nD1,2\nD1,3\n", "current", "--spot-current"},
 		{"two gates", "device,Vg (V),Ugs (V),id_A\nD1,2,2,3\nD1,3,3,4\n", "both look like vg", "--map vg=2 or --map vg=3"},
 		{"drain of what", "device,Vg (V),Drain\nD1,2,2\nD1,3,3\n", "drain current or drain voltage", "--map id=3"},
-		{"spots of nobody", "vgs_at_10mA_V\n2.5\n2.6\n", "no device column", "--map device"},
 		{"wide in two units", "Vg (V),D1 (A),D2 (V)\n2,1,2\n3,2,3\n", "other device columns are not", ""},
 		{"gm at which current", "dut,vgs_at_1mA_V,vgs_at_1A_V,gm_S\nA,1,2,3\n", "at which current", "--spot-current"},
 		{"two spots at one current", "dut,vgs_at_10mA_V,Ugs bei 10 mA (V)\nA,1,2\n", "same current", "--map vg=2"},

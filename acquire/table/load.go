@@ -7,9 +7,9 @@ import (
 	"gatesill/store/record"
 )
 
-// settleLoad decides whether a 'load' column is the voltage across R_L or at
-// the drain by what it does when the current rises: across R_L it rises, at the
-// drain it falls. Nothing else tells the two apart.
+// settleLoad tells the voltage across R_L from that at the drain in a column
+// that is only called load: with more current the first grows and the second
+// shrinks. Nothing else tells the two apart.
 func (r *reader) settleLoad() error {
 	c := r.first(roleLoad)
 	if c == nil {

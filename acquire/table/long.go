@@ -49,6 +49,7 @@ type builder struct {
 	returns []int  // points at which the device came back after others
 	breaks  []int  // points at which the file says that another sweep begins
 	sweep   string // of the sweep column, last row
+	states  int    // cells with a state
 }
 
 func (b *builder) len() int {
@@ -141,11 +142,13 @@ func (l *longReader) point(b *builder) {
 			for i := range l.fields[:j] {
 				b.cols[i].drop()
 			}
+			b.states -= l.r.file.States - states
 			b.marks, l.r.file.States = b.marks[:marks], states
 			l.w.refuseUnlessHeader(f.as + " " + why)
 			return
 		}
 		if st != "" {
+			b.states++
 			b.marks = append(b.marks, record.Mark{Index: len(col.values) - 1, Quantity: f.q, State: st, Raw: cut(string(trim(cells[f.index])), 40)})
 			l.r.file.States++
 		}
@@ -209,6 +212,9 @@ func (l *longReader) newBuilder() *builder {
 		if c != nil {
 			*who.at(i) = string(trim(l.w.cells[c.index]))
 		}
+	}
+	if l.r.sided {
+		who.device = who.pkg + who.side
 	}
 	bad := who.check()
 	b := &builder{names: who, bad: bad, cols: make([]buffer, len(l.fields))}

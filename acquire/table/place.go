@@ -35,7 +35,7 @@ func (r *reader) placeColumns(claimed map[string]bool) error {
 		free[0].as, free[0].how = string(RoleDevice), "position" // devices are numbered
 		free[1].as, free[1].how = "vg", "position"
 		return nil
-	case spot && claimed[string(RoleDevice)] && len(free) == 1:
+	case spot && len(free) == 1 && (claimed[string(RoleDevice)] || len(texts) == 0):
 		free[0].as, free[0].how = "vg", "position"
 		return nil
 	case len(free) == 2 && !claimed["id"] && len(texts) <= 1 && r.looksSwept(free[0], free[1]):
@@ -45,8 +45,20 @@ func (r *reader) placeColumns(claimed map[string]bool) error {
 		return nil
 	}
 	hint := "--map device=1,vg=2,id=3"
-	if len(free) == 1 && len(texts) <= 1 && !spot {
+	switch {
+	case len(free) == 1 && len(texts) <= 1 && !spot:
 		hint = "--spot-current 10mA"
+	case len(r.cols) == 2 && r.delim == ',' && r.opt.Decimal == "" && whole(&r.cols[0]) && whole(&r.cols[1]):
+		hint = "--decimal comma for one column of numbers, or --map device=1,vg=2 for two"
+	case len(r.cols) == 2 && spot:
+		hint = "--map device=1,vg=2"
+	case len(r.cols) == 2:
+		hint = "--map vg=1,id=2, or --map device=1,vg=2 --spot-current 10mA"
+	case len(r.cols) == 1:
+		hint = "--map vg=1 --spot-current 10mA"
+	}
+	if len(r.cols) == 1 {
+		return r.ambiguous(0, hint, "the file has no header, and its one column does not tell what it is")
 	}
 	return r.ambiguous(0, hint, "the file has no header, and its %d columns do not tell what they are", len(r.cols))
 }

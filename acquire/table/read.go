@@ -51,11 +51,17 @@ type reader struct {
 	cols       []column
 	num        numeral
 	layout     string
+	summaries  []remarkLine // refused rows whose device cell is a summary word, with it
+	numbered   bool         // devices are numbered by their rows
+	sided      bool         // devices are named by package and side
+	footer     int          // refused rows that are the foot of a spreadsheet
 
-	talk       []remarkLine // comments and what stands above the header
-	talkCond   record.Condition
-	talkText   map[Role]string // operator, fixture, date as comments say
-	talkDevice string          // the device of a file without device column
+	talk        []remarkLine // comments and what stands above the header
+	talkCond    record.Condition
+	talkText    map[Role]string // operator, fixture, date as comments say
+	talkChannel string          // "p", "n" as comments say
+	unread      []remarkLine    // conditions in comments that cannot be read
+	talkDevice  string          // the device of a file without device column
 }
 
 // remarkLine is a comment with its line.
@@ -70,7 +76,7 @@ type remarkLine struct {
 //
 // Errors: *[Error] wrapping [ErrRefused], [ErrAmbiguous] or [ErrTooMany], and
 // the error of the file system where there was one. With ErrTooMany the File is
-// returned too, so that its refusals can be shown.
+// returned too, with its refusals and what was recognised of its text.
 func ReadFile(path string, opt Options) (*File, error) {
 	r := newReader(path, opt)
 	f, err := os.Open(path)
@@ -103,7 +109,7 @@ func newReader(path string, opt Options) *reader {
 	if i := strings.LastIndexAny(name, `/\`); i >= 0 {
 		name = name[i+1:]
 	}
-	return &reader{place: path, opt: opt, file: &File{Name: name, Dialect: Dialect{Notes: []string{}}}, talkText: map[Role]string{}}
+	return &reader{place: path, opt: opt, file: &File{Name: name, Dialect: Dialect{Columns: []ColumnFound{}, Notes: []string{}}}, talkText: map[Role]string{}}
 }
 
 // ioError says in plain words what the file system said.
@@ -184,6 +190,7 @@ func (r *reader) read(raw []byte) (*File, error) {
 	} {
 		if err := step(); err != nil {
 			if errors.Is(err, ErrTooMany) {
+				r.describe()
 				return r.file, err
 			}
 			return nil, err

@@ -91,6 +91,17 @@ func (w *rows) refuse(why string) {
 	}
 }
 
+// noteSummary keeps the place of a refused row that sums up the rows above.
+func (w *rows) noteSummary() {
+	c := w.r.first(string(RoleDevice))
+	if c == nil || c.index >= len(w.cells) || len(w.r.summaries) == maxSummaries {
+		return
+	}
+	if name := string(trim(w.cells[c.index])); isSummaryWord(name) {
+		w.r.summaries = append(w.r.summaries, remarkLine{w.at, name})
+	}
+}
+
 // refuseUnlessHeader is refuse for a row that has text where a number should
 // be: where files were joined, the header stands there again and is no refusal.
 func (w *rows) refuseUnlessHeader(why string) {
@@ -101,6 +112,7 @@ func (w *rows) refuseUnlessHeader(why string) {
 		}
 		return
 	}
+	w.noteSummary()
 	w.refuse(why)
 }
 

@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"math"
 	"slices"
+	"strconv"
 
 	"gatesill/store/record"
 )
@@ -101,10 +102,16 @@ func (r *reader) readSpot() ([]*builder, error) {
 // row makes a builder of one row; nil when the row was refused.
 func (s *spotReader) row() *builder {
 	who := names{device: s.device}
+	if s.r.numbered {
+		who.device = strconv.Itoa(s.r.file.Rows)
+	}
 	for i, c := range s.who {
 		if c != nil {
 			*who.at(i) = string(trim(s.w.cells[c.index]))
 		}
+	}
+	if s.r.sided {
+		who.device = who.pkg + who.side
 	}
 	bad := who.check()
 	b := &builder{names: who, sweep: "spot"}
@@ -136,6 +143,7 @@ func (s *spotReader) row() *builder {
 		return nil
 	}
 	s.currents(b)
+	b.states = s.r.file.States - states
 	b.lines = []record.Lines{}
 	for i := range s.points {
 		b.lines = append(b.lines, record.Lines{Point: i, Line: s.w.at, Count: 1})

@@ -30,7 +30,7 @@ func (r *reader) readRows() error {
 	if err != nil {
 		return err
 	}
-	return r.assemble(list, q)
+	return r.assemble(r.dropSummaries(list), q)
 }
 
 // assemble cuts the points of every device into sweeps, in the order of the
@@ -348,10 +348,11 @@ func (r *reader) finish() error {
 // Strict.
 func (r *reader) checkCounts() error {
 	f := r.file
-	if f.Refused > 0 && (f.Refused*5 > f.Rows || r.opt.Strict) {
+	tooMany := (f.Refused-r.footer)*5 > f.Rows-r.footer // the foot of a spreadsheet says nothing against its rows
+	if f.Refused > 0 && (tooMany || r.opt.Strict) {
 		first := f.Refusals[0]
 		why := fmt.Sprintf("%d of %d rows refused", f.Refused, f.Rows)
-		if f.Refused*5 <= f.Rows {
+		if !tooMany {
 			why += ", and none may be"
 		}
 		for i, x := range f.Refusals[:min(3, len(f.Refusals))] {

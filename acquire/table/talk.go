@@ -31,6 +31,7 @@ const (
 	talkDwell     = "dwell"
 	talkPulsed    = "pulsed"
 	talkGateReset = "gate return"
+	talkChannel   = "channel"
 )
 
 func init() {
@@ -46,6 +47,7 @@ func init() {
 		talkDelay:     "pulsedelay samplingdelay",
 		talkDwell:     "dwell dwelltime settle settling settlingtime settletime wartezeit",
 		talkPulsed:    "pulsed",
+		talkChannel:   "channel channeltype polarity kanal kanaltyp kanalart polaritat canal canale kanaal",
 		talkGateReset: "gatereturn gatemeterreturn",
 	} {
 		for _, w := range strings.Fields(list) {
@@ -64,64 +66,6 @@ func (r *reader) addTalk(line int, row []byte) {
 // bare takes the comment mark off.
 func bare(text string) string {
 	return strings.TrimSpace(strings.TrimLeft(text, "#%!;/' \t"))
-}
-
-// said is one thing that a comment says.
-type said struct {
-	kind  string // a role, a short name, or one of the talk constants
-	key   string // as written, without unit
-	value string
-	unit  unit // of the key: VDD (V) = 12
-}
-
-var keyValue = regexp.MustCompile(`^([^:=]{1,60}?)\s*[:=]\s*(.+)$`)
-
-// listen reads a comment: pairs like "VDD = 12 V", several in a line.
-func listen(text string) []said {
-	var list []said
-	for _, part := range parts(bare(text)) {
-		key, value := "", ""
-		if m := keyValue.FindStringSubmatch(part); m != nil {
-			key, value = m[1], strings.TrimSpace(m[2])
-		} else if k, v, ok := strings.Cut(part, " "); ok && unicode.IsDigit([]rune(v + " ")[0]) {
-			key, value = k, v // VDD 12 V
-		}
-		if key == "" || value == "" {
-			continue
-		}
-		s := said{key: key, value: value}
-		if name, u, ok := splitUnit(key); ok && name != "" {
-			s.key, s.unit = name, u
-		}
-		f := fold(s.key)
-		if s.kind = talkWords[f]; s.kind == "" {
-			if w, ok := words[f]; ok && (w.rank == sure || w.role == string(RoleOperator)) {
-				s.kind = w.role
-			}
-		}
-		if s.kind == roleTorT {
-			s.kind = "temp"
-		}
-		if s.kind != "" {
-			list = append(list, s)
-		}
-	}
-	return list
-}
-
-// parts splits a comment at semicolons, bars, tabs, and commas that a blank
-// follows; a comma between digits may be a decimal mark.
-func parts(text string) []string {
-	var list []string
-	lo := 0
-	for i := 0; i < len(text); i++ {
-		c := text[i]
-		if c == ';' || c == '|' || c == '\t' || c == ',' && i+1 < len(text) && text[i+1] == ' ' {
-			list = append(list, strings.TrimSpace(text[lo:i]))
-			lo = i + 1
-		}
-	}
-	return append(list, strings.TrimSpace(text[lo:]))
 }
 
 // talkDevice is the device that a comment names, "" for none, and how sure that
@@ -150,12 +94,14 @@ func talkDevice(text string) (name string, rank int) {
 // decimal mark are known.
 func (r *reader) readTalk() {
 	r.talkCond, r.talkText, r.file.Proposed = record.Condition{}, map[Role]string{}, nil
+	r.talkChannel, r.unread = "", nil
 	r.file.Remarks = slices.DeleteFunc(r.file.Remarks, func(m Remark) bool { return m.Code == CodeCommentsDiffer })
 	best := 2
 	for _, t := range r.talk {
 		for _, s := range listen(t.text) {
 			r.propose(t.line, s)
 		}
+		r.proposeText(t.line, "channel", channelOf(bare(t.text)), &r.talkChannel)
 		if name, rank := talkDevice(t.text); name != "" && rank < best && t.line < r.bodyLine {
 			r.talkDevice, best = name, rank
 		}
@@ -177,17 +123,19 @@ func (r *reader) propose(line int, s said) {
 			r.proposed(line, string(role), value)
 		}
 	case talkCircuit:
-		r.proposeText(line, "circuit", circuitOf(s.value), (*string)(&c.Circuit))
+		r.proposeWord(line, s, "circuit", circuitOf(s.value), (*string)(&c.Circuit))
 	case talkAmmeter:
-		r.proposeText(line, "ammeter", oneOf(s.value, "drain", "source", "none"), &c.Ammeter)
+		r.proposeWord(line, s, "ammeter", oneOf(s.value, "drain", "source", "none"), &c.Ammeter)
 	case talkGateReset:
-		r.proposeText(line, "gate return", oneOf(s.value, "source", "ground"), &c.GateReturn)
+		r.proposeWord(line, s, "gate return", oneOf(s.value, "source", "ground"), &c.GateReturn)
+	case talkChannel:
+		r.proposeWord(line, s, "channel", channelWord(s.value), &r.talkChannel)
 	case talkPulsed:
 		word := oneOf(s.value, "pulsed", "dc")
 		if word == "" {
 			word = map[string]string{"yes": "pulsed", "ja": "pulsed", "no": "dc", "nein": "dc"}[fold(s.value)]
 		}
-		r.proposeText(line, "mode", word, &c.Pulsed)
+		r.proposeWord(line, s, "mode", word, &c.Pulsed)
 	default:
 		r.proposeNumber(line, s)
 	}
@@ -214,9 +162,13 @@ func (r *reader) proposeNumber(line int, s said) {
 		name, to = "temperature", &c.Temp
 		r.proposeText(line, "temperature of", tempOf(s.key), &c.TempOf)
 	case talkTol:
-		r.proposeFraction(line, "tolerance of R_L", s.value, &c.RLTol)
+		if !r.proposeFraction(line, "tolerance of R_L", s.value, &c.RLTol) {
+			r.cannotRead(line, s)
+		}
 	case talkDuty:
-		r.proposeFraction(line, "duty cycle", s.value, &c.PulseDuty)
+		if !r.proposeFraction(line, "duty cycle", s.value, &c.PulseDuty) {
+			r.cannotRead(line, s)
+		}
 	case talkRating:
 		name, dim, to = "rating of R_L", "W", &c.RLRating
 	case talkBurden:
@@ -233,9 +185,29 @@ func (r *reader) proposeNumber(line int, s said) {
 	if to == nil {
 		return
 	}
-	if x, ok := talkNumber(s.value, dim, s.unit, r.num.mark); ok {
-		r.proposeNum(line, name, x, dim, to)
+	x, ok := talkNumber(s.value, dim, s.unit, r.num.mark)
+	if !ok {
+		r.cannotRead(line, s)
+		return
 	}
+	r.proposeNum(line, name, x, dim, to)
+}
+
+// cannotRead keeps a condition that looks like one and cannot be read, to be
+// told once all comments are known.
+func (r *reader) cannotRead(line int, s said) {
+	if len(r.unread) < keptRows {
+		r.unread = append(r.unread, remarkLine{line, cut(s.key, 40) + " = " + cut(s.value, 60)})
+	}
+}
+
+// proposeWord is proposeText for a word out of a few; "" is none of them.
+func (r *reader) proposeWord(line int, s said, name, word string, to *string) {
+	if word == "" {
+		r.cannotRead(line, s)
+		return
+	}
+	r.proposeText(line, name, word, to)
 }
 
 func (r *reader) proposeNum(line int, name string, x float64, dim string, to *record.Num) {
@@ -260,19 +232,20 @@ func (r *reader) proposeText(line int, name, value string, to *string) {
 	}
 }
 
-func (r *reader) proposeFraction(line int, name, text string, to *record.Num) {
+// proposeFraction takes a percentage, and reports whether there was one.
+func (r *reader) proposeFraction(line int, name, text string, to *record.Num) bool {
 	m := percent.FindStringSubmatch(text)
 	if m == nil {
-		return
+		return false
 	}
 	x, err := strconv.ParseFloat(strings.Replace(m[1], ",", ".", 1), 64)
 	if err != nil || x <= 0 || x > 100 {
-		return
+		return false
 	}
-	if have, ok := to.Get(); ok && have == x/100 {
-		return
+	if have, ok := to.Get(); !ok || have != x/100 {
+		r.proposeNum(line, name, x/100, "of it", to)
 	}
-	r.proposeNum(line, name, x/100, "of it", to)
+	return true
 }
 
 func (r *reader) proposed(line int, name, value string) {

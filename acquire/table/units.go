@@ -3,8 +3,6 @@ package table
 import (
 	"fmt"
 	"math"
-	"slices"
-	"strings"
 )
 
 // unitOption gives the unit that --units states for a quantity. A load column
@@ -108,59 +106,6 @@ func (r *reader) unitsInCells(c *column, dim string) bool {
 		}
 	}
 	return false
-}
-
-// askUnits settles the columns that are left without a unit.
-func (r *reader) askUnits(open []*column) error {
-	if len(open) == 0 {
-		return nil
-	}
-	var flags, names []string
-	for _, c := range open {
-		short := c.as
-		if short == roleLoad {
-			short = "vl"
-		}
-		if f := short + "=" + dimOf(c.as); !slices.Contains(flags, f) {
-			flags = append(flags, f)
-		}
-		if len(names) < 5 {
-			names = append(names, c.title())
-		}
-	}
-	hint := "--units " + strings.Join(flags, ",")
-	if r.layout == layoutWide && slices.Contains(flags, "id=A") {
-		hint += ", with vl=V or vd=V in place of id=A where the devices' columns are voltages"
-	}
-	what := "column"
-	if len(open) > 1 {
-		what = "columns"
-	}
-	if r.opt.Ask == nil {
-		return r.ambiguous(r.headerLine, hint, "no unit for %s %s", what, strings.Join(names, ", "))
-	}
-	answers := map[string]string{}
-	for _, c := range open {
-		dim := dimOf(c.as)
-		if _, ok := answers[c.as]; !ok {
-			choices := []string{dim, "m" + dim, "u" + dim}
-			if dim == "A" {
-				choices = append(choices, "n"+dim)
-			}
-			answer, err := r.ask(Question{
-				Text:    fmt.Sprintf("no unit for column %s (%s): which is it?", c.title(), c.as),
-				Choices: choices, Flag: "--units " + c.as + "=",
-			}, r.headerLine, hint)
-			if err != nil {
-				return err
-			}
-			answers[c.as] = answer
-		}
-		u, _ := readUnit(answers[c.as])
-		c.unit, _ = u.as(dim)
-		c.hasUnit = true
-	}
-	return nil
 }
 
 // doubtUnits remarks on columns whose numbers no bench gives in the unit of

@@ -17,7 +17,7 @@ func deviceCmd(env *job.Env) *cobra.Command {
 	}
 	pf := cmd.PersistentFlags()
 	pf.StringVar(&lot, "lot", "", "the device's `LOT` (needed when several lots have such a device)")
-	pf.StringVar(&reason, "reason", "", "why, for the audit trail")
+	pf.StringVar(&reason, "reason", "", "why, in `WORDS`, for the audit trail")
 	devices := func(c *cobra.Command, args []string, _ string) ([]string, cobra.ShellCompDirective) {
 		if len(args) > 0 || lot == "" {
 			return nil, cobra.ShellCompDirectiveNoFileComp

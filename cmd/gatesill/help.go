@@ -22,8 +22,8 @@ var topics = []struct {
 
 func helpCmd(env *job.Env) *cobra.Command {
 	cmd := &cobra.Command{
-		Use: "help [codes|bench-file|exit-codes|VERB]", Short: "Help on a verb, a warning code or a topic",
-		Example: "  gatesill help import\n  gatesill help codes",
+		Use: "help [codes|CODE|bench-file|exit-codes|VERB]", Short: "Help on a verb, a warning code or a topic",
+		Example: "  gatesill help import\n  gatesill help codes\n  gatesill help two-populations",
 		RunE: func(cmd *cobra.Command, args []string) error {
 			root := cmd.Root()
 			if len(args) == 0 {
@@ -33,6 +33,9 @@ func helpCmd(env *job.Env) *cobra.Command {
 				if t.name == args[0] {
 					return t.show(env)
 				}
+			}
+			if found, err := job.HelpCode(env, args[0]); found {
+				return err
 			}
 			c, rest, err := root.Find(args)
 			if err != nil || c == root || len(rest) > 0 {
@@ -62,7 +65,7 @@ func helpExit(env *job.Env) error {
 		text string
 	}{
 		{job.ExitDone, "done, also when a fit declined to give a number"},
-		{job.ExitFailed, "the job failed, or some of several files were refused, or a file is ambiguous"},
+		{job.ExitFailed, "something went wrong: a file refused or ambiguous, no such lot, no space"},
 		{job.ExitUsage, "used wrongly"},
 		{job.ExitNo, "the answer is no, and --fail asked for that"},
 		{job.ExitInstrument, "trouble with an instrument or a port"},

@@ -21,16 +21,7 @@ import (
 // and say in words what it is when it is refused; nothing of it may reach the
 // terminal as a control character.
 func TestHostileFiles(t *testing.T) {
-	if testing.Short() {
-		t.Skip("builds the program")
-	}
-	dir := t.TempDir()
-	bin := filepath.Join(dir, "gatesill")
-	build := exec.Command("go", "build", "-o", bin, ".")
-	build.Env = append(os.Environ(), "CGO_ENABLED=0")
-	if out, err := build.CombinedOutput(); err != nil {
-		t.Fatalf("build: %v\n%s", err, out)
-	}
+	dir, bin := buildProgram(t)
 	rng := rand.New(rand.NewPCG(1, 2))
 	noise := make([]byte, 1<<20)
 	for i := range noise {

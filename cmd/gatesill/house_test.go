@@ -48,15 +48,13 @@ var onlyImporter = map[string][]string{
 const module = "gatesill/"
 
 type pkg struct {
-	ImportPath  string
-	Imports     []string
-	GoFiles     []string
-	TestImports []string
+	ImportPath string
+	Imports    []string
 }
 
 func packages(t *testing.T) []pkg {
 	t.Helper()
-	out, err := exec.Command("go", "list", "-json=ImportPath,Imports,GoFiles", module+"...").Output()
+	out, err := exec.Command("go", "list", "-json=ImportPath,Imports", module+"...").Output()
 	if err != nil {
 		t.Fatalf("go list: %v", err)
 	}

@@ -1,7 +1,10 @@
 package main
 
 import (
+	"maps"
+	"slices"
 	"strings"
+	"unicode/utf8"
 
 	"github.com/spf13/cobra"
 
@@ -19,8 +22,9 @@ func importCmd(env *job.Env) *cobra.Command {
 		Long: `Reads CSV and other text tables into a lot: one long table with a device column,
 one gate column with a column per device, one file per device, or a list of V_GS
 at one current. Delimiter, decimal mark, units and columns are found once per
-file and printed; what stays open is asked on a terminal, else refused with the
-flag that settles it. Each file is stored whole or not at all. - is stdin.
+file and printed; what stays open is a question on a terminal, and in a script
+the file is refused with a hint. Each file is stored whole or not at all. - is
+stdin.
 
 Without --circuit only constant-current values can be had.
 A file with a lot column gives LOT its own rows.`,
@@ -33,11 +37,20 @@ A file with a lot column gives LOT its own rows.`,
 			rq.Lot, rq.Files, rq.Stdin = args[0], args[1:], cmd.InOrStdin()
 			g.Circuit, g.Ammeter, g.TempOf, rq.Channel = record.Circuit(circuit), ammeter, tempOf, record.Channel(channel)
 			rq.Table.SpotCurrent = g.SpotCurrent
+			if d := rq.Table.Delimiter; d != "" && !slices.Contains(delimiters, d) && utf8.RuneCountInString(d) != 1 {
+				return job.Usage("--delimiter semicolon", "--delimiter %s: neither one of %s nor a single sign", d, strings.Join(delimiters, ", "))
+			}
+			if x, ok := g.Temp.Get(); ok && x < -273.15 {
+				return job.Usage("--temp 25C", "--temp: %g degC is below the absolute zero", x)
+			}
 			var err error
 			if rq.Table.Map, err = pairs("map", "vg=COLUMN,id=COLUMN", columns); err != nil {
 				return err
 			}
 			if rq.Table.Units, err = pairs("units", "vg=V,id=mA", units); err != nil {
+				return err
+			}
+			if err := checkUnits(rq.Table.Units); err != nil {
 				return err
 			}
 			if x, ok := g.RL.Get(); ok && x <= 0 {
@@ -75,6 +88,34 @@ A file with a lot column gives LOT its own rows.`,
 	return cmd
 }
 
+// delimiters are the names that --delimiter takes.
+var delimiters = []string{"comma", "semicolon", "tab", "pipe", "blank"}
+
+// quantities are the columns of numbers by their names in --map and --units,
+// with their units; vgs and vds are taken for vg and vd.
+var quantities = map[string]string{
+	"vg": "V", "vgs": "V", "id": "A", "vl": "V", "vd": "V", "vds": "V", "vdd": "V", "ig": "A", "gm": "S", "temp": "degC", "t": "s", "rl": "ohm",
+}
+
+// texts are the columns of other things by their names in --map.
+var texts = []string{
+	"device", "lot", "package", "side", "date", "operator", "fixture", "date-code", "marking", "tube", "note", "sweep", "ignore",
+}
+
+// checkUnits wants units of the quantity they are given for.
+func checkUnits(units map[string]string) error {
+	for name, unit := range units {
+		want, ok := quantities[name]
+		if !ok {
+			return job.Usage("--units vg=V,id=mA", "--units: %q is no quantity; there are %s", name, strings.Join(slices.Sorted(maps.Keys(quantities)), ", "))
+		}
+		if _, written, err := record.SplitUnit(unit, want); err != nil || !written {
+			return job.Usage("--units vg=V,id=mA", "--units: %s=%s: want a unit of %s", name, unit, want)
+		}
+	}
+	return nil
+}
+
 // pairs reads name=value words of a flag.
 func pairs(flag, example string, words []string) (map[string]string, error) {
 	if len(words) == 0 {
@@ -86,6 +127,10 @@ func pairs(flag, example string, words []string) (map[string]string, error) {
 		k, v = strings.ToLower(strings.TrimSpace(k)), strings.TrimSpace(v)
 		if !ok || k == "" || v == "" {
 			return nil, job.Usage("--"+flag+" "+example, "--%s: %q is not of the form NAME=VALUE", flag, w)
+		}
+		if _, number := quantities[k]; !number && !slices.Contains(texts, k) {
+			return nil, job.Usage("--"+flag+" "+example, "--%s: nothing is called %q; there are %s and %s", flag, k,
+				strings.Join(slices.Sorted(maps.Keys(quantities)), ", "), strings.Join(texts, ", "))
 		}
 		if _, twice := out[k]; twice {
 			return nil, job.Usage("--"+flag+" "+example, "--%s: %s is given twice", flag, k)

@@ -34,7 +34,7 @@ func lotCmd(env *job.Env) *cobra.Command {
 		ValidArgsFunction: lots(env, false),
 	}
 	lotEdit.add(edit)
-	edit.Flags().StringVar(&reason, "reason", "", "why, for the audit trail")
+	edit.Flags().StringVar(&reason, "reason", "", "why, in `WORDS`, for the audit trail")
 	rename := &cobra.Command{
 		Use: "rename LOT NEW", Short: "Give a lot another name", Args: exactly(2),
 		Example: "  gatesill lot rename bag1 2431",
@@ -43,7 +43,7 @@ func lotCmd(env *job.Env) *cobra.Command {
 		},
 		ValidArgsFunction: lots(env, false),
 	}
-	rename.Flags().StringVar(&reason, "reason", "", "why, for the audit trail")
+	rename.Flags().StringVar(&reason, "reason", "", "why, in `WORDS`, for the audit trail")
 	cmd.AddCommand(add, edit, rename,
 		&cobra.Command{
 			Use: "list", Short: "List all lots", Args: exactly(0), Example: "  gatesill lot list",

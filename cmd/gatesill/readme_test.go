@@ -12,15 +12,7 @@ import (
 // TestReadme runs the commands of README's session in their order and wants
 // their output to be what is shown there. GATESILL_UPDATE=1 writes it anew.
 func TestReadme(t *testing.T) {
-	if testing.Short() {
-		t.Skip("builds the program")
-	}
-	dir := t.TempDir()
-	build := exec.Command("go", "build", "-o", filepath.Join(dir, "gatesill"), ".")
-	build.Env = append(os.Environ(), "CGO_ENABLED=0")
-	if out, err := build.CombinedOutput(); err != nil {
-		t.Fatalf("build: %v\n%s", err, out)
-	}
+	dir, _ := buildProgram(t)
 	have, err := os.ReadFile("../../README.md")
 	if err != nil {
 		t.Fatal(err)

@@ -85,9 +85,9 @@ uncertainty stays in its bin and is marked maybe, with the bin across the edge.`
 	fs := cmd.Flags()
 	fs.SortFlags = false
 	fs.Var(choice{&rq.By, []string{"vgsth", "vgs-idle", "gm-idle"}}, "by", "quantity (default: gate bias at the idle current where the lot has one)")
-	fs.StringVar(&rq.Width, "width", "", "width of a bin: 50mV")
+	fs.StringVar(&rq.Width, "width", "", "width of a bin: `50mV`")
 	fs.StringSliceVar(&rq.Edges, "edges", nil, "edges of the bins: `a,b,c`")
-	fs.IntVar(&rq.Bins, "bins", 0, "number of bins")
+	fs.IntVar(&rq.Bins, "bins", 0, "`NUMBER` of bins")
 	fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 when a device is in no bin")
 	atFlag(cmd, &o)
 	return cmd
@@ -158,7 +158,7 @@ func demoCmd(env *job.Env) *cobra.Command {
 		Use: "demo", Short: "The whole job on two invented lots",
 		Long: `Makes curve files of two invented lots, imports, fits, flags, sorts and reports
 them, and leaves files, store and reports in a folder. It may be run again.`,
-		Example: "  gatesill demo\n  gatesill demo --out /tmp/look", Args: exactly(0),
+		Example: "  gatesill demo\n  gatesill demo --out look", Args: exactly(0),
 		RunE: func(cmd *cobra.Command, _ []string) error { return job.Demo(cmd.Context(), env, dir) },
 	}
 	cmd.Flags().StringVar(&dir, "out", "gatesill-demo", "`DIR` to leave everything in")

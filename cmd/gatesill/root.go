@@ -4,12 +4,12 @@ import (
 	"bufio"
 	"context"
 	"fmt"
-	"io"
 	"os"
 	"os/user"
 	"runtime/debug"
 	"slices"
 	"strings"
+	"sync"
 
 	"github.com/spf13/cobra"
 	"golang.org/x/term"
@@ -55,7 +55,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	}
 	root.SetVersionTemplate("gatesill {{.Version}}\n")
 	root.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
-		return job.Usage("gatesill help "+strings.TrimPrefix(strings.TrimPrefix(cmd.CommandPath(), "gatesill"), " "), "%w", err)
+		return job.Usage(strings.TrimSpace("gatesill help "+strings.TrimPrefix(cmd.CommandPath(), "gatesill")), "%w", err)
 	})
 	p := root.PersistentFlags()
 	p.StringVar(&env.Store, "store", os.Getenv("GATESILL_STORE"), "the store's `PATH` (default: GATESILL_STORE, else the user's data folder)")
@@ -63,13 +63,21 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.StringVar(&color, "color", "auto", "colour: auto, always or never")
 	p.BoolVarP(&env.Quiet, "quiet", "q", false, "no talk, only results, warnings and errors")
 	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
-	p.BoolVar(&env.Yes, "yes", false, "go on without asking whether to")
+	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (no verb does so far)")
 	root.AddCommand(
 		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
 		reportCmd(env), exportCmd(env), backupCmd(env), versionCmd(env),
 	)
 	root.SetHelpCommand(helpCmd(env))
 	root.InitDefaultCompletionCmd()
+	for _, c := range root.Commands() {
+		if c.Name() == "completion" {
+			c.Args = noSuch
+			c.RunE = func(*cobra.Command, []string) error {
+				return job.Usage("gatesill completion bash", "completion: name a shell: bash, zsh, fish or powershell")
+			}
+		}
+	}
 	return root
 }
 
@@ -105,28 +113,47 @@ func fillEnv(env *job.Env, cmd *cobra.Command, color string) error {
 		}
 	}
 	if term.IsTerminal(int(os.Stdin.Fd())) && errTTY {
-		env.Ask = ask(env)
+		env.Ask = ask(cmd.Context(), env)
 	}
 	return nil
 }
 
 // ask puts a question of the reader on the terminal until it is answered with
-// one of its choices.
-func ask(env *job.Env) func(table.Question) (string, error) {
-	in := bufio.NewReader(os.Stdin)
+// one of its choices, or until the job is interrupted.
+func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error) {
+	lines := make(chan string)
+	ended := make(chan error, 1)
+	start := sync.OnceFunc(func() {
+		go func() {
+			in := bufio.NewScanner(os.Stdin)
+			for in.Scan() {
+				lines <- in.Text()
+			}
+			ended <- in.Err()
+		}()
+	})
 	return func(q table.Question) (string, error) {
+		start()
 		for {
-			fmt.Fprintf(env.Err, "%s\n[%s] ? ", report.Clean(q.Text), strings.Join(q.Choices, ", "))
-			line, err := in.ReadString('\n')
-			answer := strings.TrimSpace(line)
-			if slices.Contains(q.Choices, answer) || answer != "" && len(q.Choices) == 0 {
-				return answer, nil
+			fmt.Fprintf(env.Err, "%s\n", report.Clean(q.Text))
+			if len(q.Choices) > 0 {
+				fmt.Fprintf(env.Err, "[%s] ", report.Clean(strings.Join(q.Choices, ", ")))
 			}
-			if err == io.EOF {
-				return "", job.Usage("answer with "+q.Flag, "%s", q.Text)
-			}
-			if err != nil {
-				return "", err
+			fmt.Fprint(env.Err, "? ")
+			select {
+			case <-ctx.Done():
+				return "", ctx.Err()
+			case err := <-ended:
+				if err != nil {
+					return "", err
+				}
+				return "", job.Usage("answer with "+q.Flag, "no answer")
+			case line := <-lines:
+				answer := strings.TrimSpace(line)
+				if slices.Contains(q.Choices, answer) || answer != "" && len(q.Choices) == 0 {
+					return answer, nil
+				}
+				fmt.Fprintf(env.Err, "%q is none of these.\n", report.Clean(answer))
 			}
 		}
 	}

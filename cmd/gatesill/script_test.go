@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"os/exec"
 	"path/filepath"
 	"strconv"
 	"strings"
@@ -15,6 +16,23 @@ import (
 
 func TestMain(m *testing.M) {
 	testscript.Main(m, map[string]func(){"gatesill": main})
+}
+
+// buildProgram builds the program as it is released and gives its folder, which
+// goes with the test, and its path.
+func buildProgram(t *testing.T) (dir, bin string) {
+	t.Helper()
+	if testing.Short() {
+		t.Skip("builds the program")
+	}
+	dir = t.TempDir()
+	bin = filepath.Join(dir, "gatesill")
+	build := exec.Command("go", "build", "-o", bin, ".")
+	build.Env = append(os.Environ(), "CGO_ENABLED=0")
+	if out, err := build.CombinedOutput(); err != nil {
+		t.Fatalf("build: %v\n%s", err, out)
+	}
+	return dir, bin
 }
 
 // TestScripts runs testdata/cli: one text script a behaviour. Besides the usual

@@ -136,13 +136,17 @@ func counts(d *Device) bool {
 }
 
 // valueOf is a quantity of a device with its uncertainty; NaN: none. KeySpan is
-// made from two spots.
+// made from two spots. A largest transconductance at the end of a sweep says how
+// far the sweep went, not what the device is: it is compared with no other.
 func valueOf(d *Device, k fit.Key) (x, u float64) {
 	if k == KeySpan {
 		a, b := d.Result.Vgsth, d.Result.VgsIdle
 		return b.Value - a.Value, math.Hypot(a.U, b.U)
 	}
 	q := d.Result.At(k)
+	if k == fit.KeyGmMax && d.Result.GmRising {
+		q = nil
+	}
 	if q == nil || math.IsInf(q.Value, 0) {
 		return math.NaN(), math.NaN()
 	}

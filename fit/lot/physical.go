@@ -25,13 +25,13 @@ type leakRule struct {
 func leakRuleOf(c *column, opt *SpreadOptions) leakRule {
 	r := leakRule{limit: math.Inf(1), lot: math.Inf(1)}
 	if opt.LeakageLimit > 0 {
-		r.limit, r.limitAs = opt.LeakageLimit, "the limit"
+		r.limit, r.limitAs = opt.LeakageLimit, "the limit of"
 		return r
 	}
 	test := 1e-3
 	if opt.TestCurrent > 0 && !math.IsInf(opt.TestCurrent, 0) {
 		test = opt.TestCurrent
-		r.limit, r.limitAs = test/10, "a tenth of the test current"
+		r.limit, r.limitAs = test/10, "a tenth of the test current of "+engineering(test, "A")+", that is"
 	}
 	if len(c.sorted) >= fewest {
 		var size []float64
@@ -62,7 +62,7 @@ func (r *leakRule) leaks(res *fit.Result) string {
 	is := fmt.Sprintf("drain leakage is %s with the gate off", engineering(size, "A"))
 	switch {
 	case sure > r.limit:
-		return fmt.Sprintf("%s, more than %s of %s", is, r.limitAs, engineering(r.limit, "A"))
+		return fmt.Sprintf("%s, more than %s %s", is, r.limitAs, engineering(r.limit, "A"))
 	case r.median > 0:
 		return fmt.Sprintf("%s, %s times the lot's median of %s", is, short(size/r.median), engineering(r.median, "A"))
 	}

@@ -112,32 +112,27 @@ func (l *judge) dropUnasked() {
 	}
 }
 
-// familyColumns are the quantities in which devices of one family are alike, the
-// one that the lot is sorted by first. A gate span stands in where no gain is
-// known; a second quantity with the same values is not looked at twice.
+// familyColumns are the quantities in which devices of one family are alike: one
+// gate voltage (that which the lot is sorted by) and one measure of drive
+// strength, the one that most devices have. More of each say the same again, and
+// every quantity looked at costs power in all, for the false alarms of a lot are
+// limited together. A gate span stands in where no gain is known.
 func (l *judge) familyColumns() []*column {
 	var out []*column
 	add := func(c *column) {
-		for _, d := range out {
-			if sameValues(c, d) {
-				return
-			}
-		}
-		if len(c.sorted) > 0 {
+		if c != nil && len(c.sorted) > 0 {
 			out = append(out, c)
 		}
 	}
-	if isThreshold(l.sortedBy) || isGain(l.sortedBy) {
-		add(l.columns[l.sortedBy])
+	add(l.most(l.sortedBy, isThreshold, fit.KeyVgsIdle, fit.KeyVgsth))
+	gain := l.most(l.sortedBy, isGain, fit.KeyGmIdle, fit.KeyBeta, fit.KeyGmMax)
+	add(gain)
+	if isGain(l.sortedBy) && len(out) == 2 {
+		out[0], out[1] = out[1], out[0] // the one that the lot is sorted by first
 	}
 	gains := 0
-	for _, k := range fit.Keys {
-		if isThreshold(k) || isGain(k) {
-			add(l.columns[k])
-		}
-		if isGain(k) {
-			gains = max(gains, len(l.columns[k].sorted))
-		}
+	if gain != nil {
+		gains = len(gain.sorted)
 	}
 	if gains == 0 {
 		step := math.Max(l.opt.Resolution[fit.KeyVgsth], l.opt.Resolution[fit.KeyVgsIdle])
@@ -154,16 +149,19 @@ func (l *judge) familyColumns() []*column {
 	return out
 }
 
-func sameValues(a, b *column) bool {
-	if a.log != b.log || len(a.sorted) != len(b.sorted) {
-		return false
+// most is the column that the lot is sorted by if it is of that kind, else of the
+// keys the one that most devices have, the first of equals.
+func (l *judge) most(sortedBy fit.Key, kind func(fit.Key) bool, keys ...fit.Key) *column {
+	if kind(sortedBy) && len(l.columns[sortedBy].sorted) > 0 {
+		return l.columns[sortedBy]
 	}
-	for i, x := range a.x {
-		if math.IsNaN(x) != math.IsNaN(b.x[i]) || math.Abs(x-b.x[i]) > 1e-9 {
-			return false
+	var best *column
+	for _, k := range keys {
+		if c := l.columns[k]; c != nil && (best == nil || len(c.sorted) > len(best.sorted)) {
+			best = c
 		}
 	}
-	return true
+	return best
 }
 
 // main is a column without the devices of a small second population.

@@ -261,6 +261,7 @@ func TestInBrowser(t *testing.T) {
 		require.Equal(t, "none", js[string](t, ctx, `getComputedStyle(document.querySelector("nav")).display`))
 		require.Equal(t, "rgb(255, 255, 255)", js[string](t, ctx, `getComputedStyle(document.body).backgroundColor`))
 		require.Equal(t, "table-header-group", js[string](t, ctx, `getComputedStyle(document.querySelector("#device-table thead")).display`))
+		require.Equal(t, 1.0, js[float64](t, ctx, `Math.max(...[...document.querySelectorAll("#device-table tbody th bdi")].map(n => n.getClientRects().length && Math.round(n.getBoundingClientRect().height / parseFloat(getComputedStyle(n).lineHeight))))`), "a short name of a device is broken")
 		// A button box in a head keeps the engine from repeating it on each page.
 		require.Equal(t, "contents", js[string](t, ctx, `getComputedStyle(document.querySelector("#device-table thead button")).display`))
 	})
@@ -268,6 +269,9 @@ func TestInBrowser(t *testing.T) {
 	t.Run("fits a phone", func(t *testing.T) {
 		ctx := tab(t, b, s.URL, chromedp.EmulateViewport(360, 780))
 		require.LessOrEqual(t, js[float64](t, ctx, `document.documentElement.scrollWidth`), 360.0, "the page as a whole scrolls sideways")
+		// Names of a bin have the width of the page, not one line each.
+		require.Greater(t, js[float64](t, ctx, `Math.min(...[...document.querySelectorAll("#bins tbody td:last-child")].map(c => c.getBoundingClientRect().width))`), 280.0)
+		require.Equal(t, 0.0, js[float64](t, ctx, `(() => { const b = document.querySelector("#bins .scroll"); return b.scrollWidth - b.clientWidth; })()`), "the table of bins scrolls sideways")
 	})
 }
 

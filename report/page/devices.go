@@ -41,7 +41,7 @@ type deviceCell struct {
 // bin, state and flag, then everything else.
 func (v *view) devices(k *known) {
 	t := &v.Devices
-	packages, methods := false, false
+	packages, methods, absolute := false, false, false
 	for i := range k.Devices {
 		d := &k.Devices[i]
 		packages = packages || d.Package != "" || d.Side != ""
@@ -65,7 +65,11 @@ func (v *view) devices(k *known) {
 	}
 	quantity := func(key fit.Key) {
 		c := k.column(key)
+		absolute = absolute || c.absolute != nil
 		column(deviceHead{Text: rich(report.KeyOf(key).Symbol), Unit: c.unit, Class: "r", Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.cells[i] })
+		if c.absolute != nil {
+			column(deviceHead{Text: "± abs.", Unit: c.unit, Class: absoluteClass(key), Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.absolute[i] })
+		}
 		column(deviceHead{Text: "n", Class: "r n", Numeric: true}, func(i int, _ *report.Device) deviceCell { return c.ns[i] })
 		if key == fit.KeyVt && methods {
 			column(deviceHead{Text: rich("V_T by")}, func(_ int, d *report.Device) deviceCell {
@@ -111,6 +115,12 @@ func (v *view) devices(k *known) {
 	}
 	t.Body = deviceRows(rows)
 	t.Note = "± is one standard uncertainty within the session (k = 1), the one that counts when devices of this lot are compared with each other; n is the number of points a value rests on."
+	if absolute {
+		t.Note += " ± abs. is one standard uncertainty against the SI unit, gain of the meters and tolerance of the load resistor included, the one that counts against a limit of the data sheet."
+	}
+	if k.any(fit.KeyIdss) {
+		t.Note += " " + rich(report.LeakageNote)
+	}
 }
 
 // deviceRows writes the rows of the table. They are the bulk of a large page;
@@ -158,6 +168,7 @@ func (k *known) any(key fit.Key) bool {
 type quantityColumn struct {
 	unit      string
 	cells, ns []deviceCell
+	absolute  []deviceCell // nil: not known of any device
 }
 
 // figureSpace is as wide as a digit: it keeps decimal marks below each other
@@ -193,6 +204,7 @@ func (k *known) column(key fit.Key) quantityColumn {
 		}
 		col.cells, col.ns = append(col.cells, c), append(col.ns, n)
 	}
+	col.absolute = k.absolutes(key, sc)
 	for i := range col.cells {
 		c := &col.cells[i]
 		if c.Sort == "" {
@@ -205,6 +217,44 @@ func (k *known) column(key fit.Key) quantityColumn {
 		c.Text = plain(text)
 	}
 	return col
+}
+
+// absoluteClass leaves the absolute uncertainties of gains and leakage out of the
+// printed table, which has no room for them: data sheets limit gate voltages, and
+// the table of uncertainties has the medians of all.
+func absoluteClass(key fit.Key) string {
+	if report.KeyOf(key).Unit == "V" {
+		return "r n"
+	}
+	return "r n screen"
+}
+
+// absolutes lays out the absolute uncertainties of one quantity; nil where none
+// is known.
+func (k *known) absolutes(key fit.Key, sc report.Scale) []deviceCell {
+	cells, found, deepest := make([]deviceCell, len(k.Devices)), false, 0
+	texts := make([]string, len(k.Devices))
+	for i := range k.Devices {
+		cells[i].Class = absoluteClass(key)
+		q := k.Devices[i].Result.At(key)
+		d, ok := report.DecimalsFor(sc.Of(q.UAbsolute))
+		if !q.Ok() || !ok {
+			continue
+		}
+		found = true
+		texts[i] = strconv.FormatFloat(sc.Of(q.UAbsolute), 'f', d, 64)
+		deepest = max(deepest, decimals(texts[i]))
+		cells[i].Sort = strconv.FormatFloat(q.UAbsolute, 'g', 9, 64)
+	}
+	if !found {
+		return nil
+	}
+	for i, text := range texts {
+		if text != "" {
+			cells[i].Text = plain("± " + text + padding(deepest-decimals(text)))
+		}
+	}
+	return cells
 }
 
 // decimals counts what stands from the decimal mark on, the mark included.

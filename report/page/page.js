@@ -16,7 +16,7 @@
   let shown = null;
   let pinned = null;
 
-  const words = (row) => heads.slice(1, 8).map((h, i) => {
+  const words = (row) => heads.slice(1, 9).map((h, i) => {
     const text = row.cells[i + 1].textContent.trim();
     if (!text || text === "–") return "";
     const label = h.querySelector("span").textContent.trim();

@@ -319,3 +319,79 @@ func BenchmarkPage5000(b *testing.B) {
 	}
 	b.ReportMetric(float64(buf.Len()), "bytes")
 }
+
+// The page names the devices whose sweeps disagree, with what was found.
+func TestSweepsThatDisagreeAreNamed(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 20, Points: 10, Seed: 1})
+	require.NotContains(t, words(write(t, s)), "Sweeps disagree")
+	r := &s.Devices[2].Result
+	r.Warnings = append(r.Warnings, fit.Warning{Code: fit.CodeSweepsDisagree, Text: "V_GS(th) of its sweeps differs by 60 mV"})
+	require.Regexp(t, `Sweeps disagree .*D03 : V_GS\(th\) of its sweeps differs by 60 mV\. \(sweeps-disagree\)`, words(write(t, s)))
+}
+
+// A sentence that begins with the two populations is not headed by them again,
+// and several quantities with too few devices are one note.
+func TestNotesAreSaidOnce(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 20, Points: 10, Seed: 1})
+	s.Spread.Populations, s.Spread.Split = 2, &lot.Split{By: fit.KeyVgsth, GapLow: 2.5, GapHigh: 3, Low: []string{"C1"}, High: []string{"C2"}, Text: "two populations by V_GS(th): 1 and 1"}
+	s.Spread.Warnings = []fit.Warning{{Code: fit.CodeTwoPopulations, Text: s.Spread.Split.Text}, {Code: fit.CodeTwoPopulations, Text: "neither group is the odd one"}}
+	for _, name := range []string{"V_GS(th)", "gain factor"} {
+		s.Spread.Warnings = append(s.Spread.Warnings, fit.Warning{Code: fit.CodeNTooSmall, Text: "too few to judge one another by " + name + ": 6 devices have a value"})
+	}
+	text := words(write(t, s))
+	require.Contains(t, text, "Note. Two populations by V_GS(th): 1 and 1.")
+	require.NotContains(t, text, "Two populations. Two populations")
+	require.Contains(t, text, "Note. Neither group is the odd one.")
+	require.Contains(t, text, "Note. Too few to judge one another by V_GS(th) and gain factor: 6 devices have a value.")
+	require.Equal(t, 1, strings.Count(text, "Too few to judge"))
+}
+
+// Long lists of names show their first and keep the others in a fold; nothing
+// is lost.
+func TestLongListsFold(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 200, Points: 6, Seed: 2})
+	var all []lot.Placed
+	for _, b := range s.Sorting.Bins {
+		all = append(all, b.Devices...)
+	}
+	require.Greater(t, len(all), 150)
+	s.Sorting.Bins = []lot.Bin{{Name: "A", Low: 2, High: 4, Devices: all}, {Name: "B", Low: 4, High: 4.5}, {Name: "C", Low: 4.5, High: 5}}
+	page := write(t, s)
+	bins := page[strings.Index(page, `<section id="bins"`):]
+	bins = bins[:strings.Index(bins, "</section>")]
+	require.Equal(t, 1, strings.Count(bins, `<details class="more">`))
+	text := words(bins)
+	for _, d := range all {
+		require.Contains(t, text, d.Name)
+	}
+	require.Regexp(t, `and \d+ more`, text)
+	require.Contains(t, text, "B to C 4.00 5.00 none none")
+
+	few := words(write(t, invented.Lot(invented.Options{Devices: 20, Points: 6, Seed: 2})))
+	require.NotRegexp(t, `and \d+ more`, few)
+}
+
+// Devices in no bin for the same reason stand together.
+func TestInNoBinByReason(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 20, Points: 6, Seed: 2})
+	for i := range s.Sorting.Unsorted[:3] {
+		s.Sorting.Unsorted[i].Why = "outside the edges given"
+	}
+	require.Contains(t, words(write(t, s)), "D05, D06, D07 : Outside the edges given.")
+}
+
+// Where the absolute uncertainty is known it stands beside that of the session.
+func TestAbsoluteUncertaintyBesideTheOther(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 10, Points: 10, Seed: 1})
+	s.Devices[0].Result.VgsIdle = fit.Quantity{Value: 3.25, U: 0.0005, UBetween: math.NaN(), UAbsolute: 0.009, N: 4}
+	require.Regexp(t, `D01 3\.25000 ± 0\.00050 ± 0\.0090 4 `, words(write(t, s)))
+	require.Contains(t, words(write(t, s)), "± abs. is one standard uncertainty")
+	for i := range s.Devices {
+		for _, key := range fit.Keys {
+			s.Devices[i].Result.At(key).UAbsolute = math.NaN()
+		}
+	}
+	without := words(write(t, s))
+	require.Regexp(t, `D01 3\.25000 ± 0\.00050 4 `, without)
+	require.NotContains(t, without, "± abs.")
+}

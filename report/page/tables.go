@@ -35,11 +35,12 @@ func (v *view) spread(k *known) {
 		if !ok || m.N == 0 && m.Above == 0 {
 			continue
 		}
-		sc, se := report.SummaryScale(key, m), report.StandardError(m)
-		num := func(x float64) cell { return number(sc.FormatNumber(x, se, 0)) }
+		sc, se, step := report.SummaryScale(key, m), report.StandardError(m), report.SummaryDigits(m)
+		num := func(x float64) cell { return number(sc.FormatNumber(x, step, 0)) }
+		plain := func(x float64) cell { return number(sc.FormatNumber(x, se, 0)) }
 		t.Rows = append(t.Rows, []cell{
 			{Text: rich(k.KeyPhrase(key)), Head: true}, text(sc.Unit(report.KeyOf(key).Unit)), number(strconv.Itoa(m.N)), number(strconv.Itoa(m.Above)),
-			num(m.Median), num(m.RobustSD), num(m.Mean), number(sc.FormatNumber(se, se, 0)), num(m.SD), num(m.Min), num(m.Max),
+			num(m.Median), num(m.RobustSD), plain(m.Mean), plain(se), plain(m.SD), num(m.Min), num(m.Max),
 		})
 	}
 	if len(t.Rows) > 0 {
@@ -52,10 +53,9 @@ func (v *view) spread(k *known) {
 	}
 	if sp := k.Spread.Split; sp != nil {
 		symbol, unit := report.KeyOf(sp.By).Symbol, report.KeyOf(sp.By).Unit
-		names := func(list []string) string { return report.Clean(strings.Join(list, ", ")) }
 		v.Groups = []group{
-			{richf("Lower group, %s, %s up to %s", plural(len(sp.Low), "device"), symbol, report.FormatPlain(sp.GapLow, math.NaN(), unit)), names(sp.Low)},
-			{richf("Upper group, %s, %s from %s", plural(len(sp.High), "device"), symbol, report.FormatPlain(sp.GapHigh, math.NaN(), unit)), names(sp.High)},
+			{richf("Lower group, %s, %s up to %s", plural(len(sp.Low), "device"), symbol, report.FormatPlain(sp.GapLow, math.NaN(), unit)), foldNames(sp.Low)},
+			{richf("Upper group, %s, %s from %s", plural(len(sp.High), "device"), symbol, report.FormatPlain(sp.GapHigh, math.NaN(), unit)), foldNames(sp.High)},
 		}
 	}
 	l := &table{Caption: "Limits behind the flags", Heads: []head{{"quantity", false}, {"unit", false}, {"low", true}, {"high", true}, {"× robust sd", true}, {"basis", false}}}
@@ -82,8 +82,8 @@ func (v *view) bins(k *known) {
 	}
 	sc := report.BinScale(srt)
 	unit := sc.Unit(report.KeyOf(srt.By).Unit)
-	t := &table{Caption: richf("Bins by %s", k.KeyPhrase(srt.By)), Heads: []head{{"bin", false}, {richf("from (%s)", unit), true}, {richf("below (%s)", unit), true}, {"devices", true}, {"which", false}}}
-	for _, b := range srt.Bins {
+	t := &table{Class: "bins", Caption: richf("Bins by %s", k.KeyPhrase(srt.By)), Heads: []head{{"bin", false}, {richf("from (%s)", unit), true}, {richf("below (%s)", unit), true}, {"devices", true}, {"which", false}}}
+	for _, b := range report.BinRows(srt) {
 		var names []string
 		for _, d := range b.Devices {
 			name := report.Clean(d.Name)
@@ -92,11 +92,11 @@ func (v *view) bins(k *known) {
 			}
 			names = append(names, name)
 		}
-		list := cell{Text: plain(strings.Join(names, ", "))}
+		list := cell{Text: foldNames(names)}
 		if len(names) == 0 {
 			list = cell{Text: "none", None: true}
 		}
-		t.Rows = append(t.Rows, []cell{nameCell(b.Name), number(report.EdgeText(srt, sc, b.Low)), number(report.EdgeText(srt, sc, b.High)), number(strconv.Itoa(len(b.Devices))), list})
+		t.Rows = append(t.Rows, []cell{nameCell(b.Name), number(report.EdgeText(srt, sc, b.Low)), number(report.EdgeText(srt, sc, b.High)), number(b.Count()), list})
 	}
 	note := "How narrow a bin may be is not known, because no uncertainty of the readings is known."
 	if isNumber(srt.SmallestWidth) && srt.SmallestWidth > 0 {
@@ -104,9 +104,31 @@ func (v *view) bins(k *known) {
 	}
 	t.Note = rich(note + " A device within 2 standard uncertainties of an edge names the bin across it as well.")
 	v.Bins = t
-	for _, u := range k.Unsorted() {
-		v.Unsorted = append(v.Unsorted, named{Name: report.Clean(u.Name), Texts: []template.HTML{rich(report.Sentence(u.Why))}})
+	for _, g := range report.GroupNames(k.Unsorted()) {
+		why := rich(report.Sentence(g.Text))
+		if len(g.Names) > mostNames {
+			v.Unsorted = append(v.Unsorted, group{richf("%d devices", len(g.Names)), why + " " + foldNames(g.Names)})
+			continue
+		}
+		v.Unsorted = append(v.Unsorted, group{"<bdi>" + plain(strings.Join(g.Names, ", ")) + "</bdi>", why})
 	}
+}
+
+// Longer lists of names are folded, with the first few in sight.
+const (
+	mostNames = 40
+	headNames = 30
+)
+
+// foldNames lists names; a long list shows its first and keeps the others one
+// click away. Printed it is whole where the browser can open it.
+func foldNames(names []string) template.HTML {
+	if len(names) <= mostNames {
+		return plain(strings.Join(names, ", "))
+	}
+	return plain(strings.Join(names[:headNames], ", ")) +
+		template.HTML(fmt.Sprintf(` <details class="more"><summary>and %d more</summary>`, len(names)-headNames)) +
+		plain(strings.Join(names[headNames:], ", ")) + "</details>"
 }
 
 func (v *view) flags(k *known) {
@@ -116,8 +138,10 @@ func (v *view) flags(k *known) {
 		}
 		n := named{Name: report.Clean(vd.Name)}
 		for _, r := range vd.Reasons {
-			text := rich(report.Sentence(r.Text))
-			if next := k.Advice(r.Code).Next; next != "" {
+			text := rich(k.ReasonText(r))
+			if r.Code == fit.CodeTwoPopulations && k.Spread.Split != nil {
+				// The advice stands with the groups.
+			} else if next := k.Advice(r.Code).Next; next != "" {
 				text += " " + rich(next)
 			} else if next := stateNext(r.Code); next != "" {
 				text += " " + rich(next)
@@ -126,6 +150,13 @@ func (v *view) flags(k *known) {
 			n.Codes = append(n.Codes, report.Clean(r.Code))
 		}
 		v.Flags = append(v.Flags, n)
+	}
+	for _, d := range k.Doubts() {
+		n := named{Name: report.Clean(d.Name)}
+		for _, text := range d.Texts {
+			n.Texts = append(n.Texts, rich(text))
+		}
+		v.Doubts = append(v.Doubts, n)
 	}
 	v.FlagCount = fmt.Sprintf("%s of %d", none(len(v.Flags)), len(k.Spread.Devices))
 }

@@ -31,10 +31,11 @@ type view struct {
 	Limits     *table
 	Groups     []group // the two populations, where there are two
 	Bins       *table
-	Unsorted   []named
+	Unsorted   []group // in no bin, by reason
 	Devices    deviceTable
 	Flags      []named
 	FlagCount  string
+	Doubts     []named // devices whose sweeps disagree
 	LeftOut    *table
 	Remarks    []remark
 	Conditions *table
@@ -77,10 +78,10 @@ type named struct {
 	Codes []string
 }
 
-// group is one of two populations.
+// group is several devices of which one thing is said.
 type group struct {
-	Head  template.HTML
-	Names string
+	Head template.HTML
+	Text template.HTML
 }
 
 // remark is one warning with the devices it holds for.
@@ -89,13 +90,13 @@ type remark struct {
 	Who     string
 	Meaning template.HTML
 	Next    template.HTML
-	Names   string // "" when it holds for all
+	Names   template.HTML // "" when it holds for all
 }
 
 func newRemark(g report.RemarkGroup) remark {
 	r := remark{Code: report.Clean(g.Code), Who: "every measured device", Meaning: rich(report.Sentence(g.Meaning)), Next: rich(g.Next)}
 	if !g.All {
-		r.Who, r.Names = plural(len(g.Devices), "device"), report.Clean(strings.Join(g.Devices, ", "))
+		r.Who, r.Names = plural(len(g.Devices), "device"), foldNames(g.Devices)
 	}
 	return r
 }
@@ -108,6 +109,7 @@ type cell struct {
 }
 
 type table struct {
+	Class   string
 	Caption template.HTML
 	Heads   []head
 	Rows    [][]cell
@@ -124,7 +126,7 @@ var symbols = strings.NewReplacer(
 	"V_GS(th)", "V<sub>GS(th)</sub>", "V_GS(idle)", "V<sub>GS(idle)</sub>", "V_GS", "V<sub>GS</sub>",
 	"V_DS", "V<sub>DS</sub>", "V_DD", "V<sub>DD</sub>", "V_T", "V<sub>T</sub>",
 	"g_m(idle)", "g<sub>m(idle)</sub>", "g_m(max)", "g<sub>m(max)</sub>", "g_m", "g<sub>m</sub>",
-	"I_DSS", "I<sub>DSS</sub>", "I_D", "I<sub>D</sub>", "R_L", "R<sub>L</sub>", "P_D", "P<sub>D</sub>", "R_th", "R<sub>th</sub>",
+	"I_D(off)", "I<sub>D(off)</sub>", "I_D", "I<sub>D</sub>", "R_L", "R<sub>L</sub>", "P_D", "P<sub>D</sub>", "R_th", "R<sub>th</sub>",
 )
 
 var beforeUnit = regexp.MustCompile(`([0-9)]) ((?:[fpnµmkMG]?(?:V|A|S|Ω|W|s|A/V²)|1/V|K/W|°C|%)\b|%|°C)`)
@@ -236,8 +238,8 @@ func (v *view) summary(k *known) {
 	v.Lead = append(v.Lead, richf("Lot %s%s: %s known, %d with a value, %s flagged.", k.Sheet.Lot.Name, part, plural(c.Devices, "device"), c.Measured, none(c.Flagged)))
 	v.Lead = append(v.Lead, rich(k.SortedPhrase(k.by)))
 	if has && m.N > 0 {
-		sc, se := report.SummaryScale(k.by, m), report.StandardError(m)
-		num := func(x float64) string { return sc.FormatNumber(x, se, 0) + " " + sc.Unit(unit) }
+		sc, step := report.SummaryScale(k.by, m), report.SummaryDigits(m)
+		num := func(x float64) string { return sc.FormatNumber(x, step, 0) + " " + sc.Unit(unit) }
 		text := fmt.Sprintf("The median is %s", num(m.Median))
 		if !math.IsNaN(m.RobustSD) {
 			text += fmt.Sprintf(" with a robust standard deviation of %s", report.FormatTwoDigits(m.RobustSD, unit))
@@ -276,7 +278,11 @@ func (v *view) summary(k *known) {
 
 func (v *view) alerts(k *known) {
 	if sp := k.Spread.Split; sp != nil {
-		v.Alerts = append(v.Alerts, alert{Text: rich("Two populations. " + report.Sentence(sp.Text)), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
+		text := report.Sentence(sp.Text)
+		if !strings.HasPrefix(text, "Two populations") {
+			text = "Two populations. " + text
+		}
+		v.Alerts = append(v.Alerts, alert{Text: rich(text), Next: rich(k.Advice(fit.CodeTwoPopulations).Next)})
 	}
 	warnings := slices.Clone(k.Spread.Warnings)
 	if k.Sorting != nil {
@@ -286,11 +292,15 @@ func (v *view) alerts(k *known) {
 			}
 		}
 	}
-	for _, w := range warnings {
+	if sp := k.Spread.Split; sp != nil {
+		warnings = slices.DeleteFunc(warnings, func(w fit.Warning) bool { return w.Text == sp.Text })
+	}
+	for _, w := range report.JoinWarnings(warnings) {
+		a := alert{Text: rich(report.Sentence(w.Text)), Next: rich(k.Advice(w.Code).Next)}
 		if w.Code == fit.CodeTwoPopulations && k.Spread.Split != nil {
-			continue
+			a.Next = "" // stands with the groups
 		}
-		v.Alerts = append(v.Alerts, alert{Text: rich(report.Sentence(w.Text)), Next: rich(k.Advice(w.Code).Next)})
+		v.Alerts = append(v.Alerts, a)
 	}
 	for _, m := range instruments(k.Sheet) {
 		if m.overdue != "" {

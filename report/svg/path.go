@@ -18,7 +18,7 @@ func (t *transfer) path(cv *Curve) bool {
 			continue // the line goes on past a point left out
 		}
 		x, y := cv.X[i], t.sign*cv.Y[i]
-		if !drawable(x) || !drawable(y) || t.o.Axis == Logarithmic && !(y >= t.y.lo*(1-1e-9)) {
+		if !drawable(x) || !drawable(y) || x < t.x.lo || x > t.x.hi || t.o.Axis == Logarithmic && !(y >= t.y.lo*(1-1e-9)) {
 			brk = true
 			continue
 		}

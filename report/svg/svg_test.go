@@ -431,3 +431,28 @@ func TestStripMarksEveryDeviceAtItsValue(t *testing.T) {
 }
 
 func scaleOf(hi float64) report.Scale { return report.ScaleOf("A", hi) }
+
+// A reading at the off voltage far below must not take most of the picture on
+// the axes where it shows nothing; on the logarithmic axis it stays.
+func TestOffVoltageDoesNotTakeThePicture(t *testing.T) {
+	curves := []Curve{{Name: "D1", X: []float64{0, 2.9, 3.0, 3.1, 3.2}, Y: []float64{1e-4, 1e-4, 0.01, 0.05, 0.1}}}
+	for axis, whole := range map[Axis]bool{Linear: false, SquareRoot: false, Logarithmic: true} {
+		tr := &transfer{canvas: &canvas{}, o: TransferOptions{Axis: axis}, curves: curves, sign: 1}
+		tr.l, tr.r, tr.t, tr.d = 0, 100, 0, 100
+		tr.ranges()
+		if got := tr.x.lo <= 0; got != whole {
+			t.Errorf("%v: the axis begins at %g V", axis, tr.x.lo)
+		}
+		if tr.x.hi < 3.2 || tr.x.lo > 2.95 {
+			t.Errorf("%v: the axis runs from %g to %g V", axis, tr.x.lo, tr.x.hi)
+		}
+	}
+	// p-channel: the far side is the upper one.
+	mirrored := []Curve{{Name: "D1", X: []float64{0, -2.9, -3.0, -3.1, -3.2}, Y: []float64{-1e-4, -1e-4, -0.01, -0.05, -0.1}}}
+	tr := &transfer{canvas: &canvas{}, o: TransferOptions{Axis: Linear, PChannel: true}, curves: mirrored, sign: -1}
+	tr.l, tr.r, tr.t, tr.d = 0, 100, 0, 100
+	tr.ranges()
+	if tr.x.hi > -2 || tr.x.lo > -3.2 {
+		t.Errorf("p-channel: the axis runs from %g to %g V", tr.x.lo, tr.x.hi)
+	}
+}

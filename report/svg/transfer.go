@@ -169,6 +169,9 @@ func (t *transfer) ranges() {
 		lo = min(lo, max(flagged.lo, -room*hi))
 		pos = min(pos, flagged.pos)
 	}
+	if t.o.Axis != Logarithmic {
+		x.lo, x.hi = t.conducting(x.lo, x.hi, hi)
+	}
 	xlo, xhi := widen(x.lo, x.hi)
 	pad := (xhi - xlo) * 0.015
 	t.x = newScale(Linear, xlo-pad, xhi+pad, t.l, t.r)
@@ -198,6 +201,32 @@ func (t *transfer) ranges() {
 	}
 	t.y = newScale(t.o.Axis, lo, hi, t.d, t.t)
 	t.unit = report.ScaleOf("A", max(math.Abs(hi), math.Abs(lo)))
+}
+
+// conducting narrows the range of gate voltages to where current flows, with a
+// third of it beside, on a side where no current flows over a longer range than
+// that: a reading at the off voltage, far below, would take most of the picture
+// and show nothing on these axes. The logarithmic axis keeps it.
+func (t *transfer) conducting(lo, hi, top float64) (float64, float64) {
+	const some = 0.003 // of the greatest current: less than two pixels
+	a, b := math.Inf(1), math.Inf(-1)
+	for i := range t.curves {
+		cv := &t.curves[i]
+		for j := range min(len(cv.X), len(cv.Y)) {
+			if y := t.sign * cv.Y[j]; drawable(cv.X[j]) && y > some*top && drawable(y) {
+				a, b = min(a, cv.X[j]), max(b, cv.X[j])
+			}
+		}
+	}
+	if span := b - a; span > 0 {
+		if a-lo > span {
+			lo = a - span/3
+		}
+		if hi-b > span {
+			hi = b + span/3
+		}
+	}
+	return lo, hi
 }
 
 // widenLog takes a range outwards to 1, 2 or 5 times a power of ten.

@@ -245,8 +245,9 @@ type Remark struct {
 	Text string `json:"text"`
 }
 
-// Estimate is what a fit said of one sweep. The key DataHash, Method, Settings,
-// Version names it: the same key adds nothing, another key adds a row.
+// Estimate is what a fit said of one sweep. DataHash, Method, Settings and Version
+// together name it: a second estimate of that name is not kept, for it would say
+// the same.
 type Estimate struct {
 	SweepID  string
 	DataHash string // of the sweep it was made from

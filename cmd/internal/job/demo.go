@@ -31,7 +31,7 @@ func Demo(ctx context.Context, env *Env, dir string) error {
 	if err := demoFolder(dir); err != nil {
 		return err
 	}
-	env.Store = filepath.Join(dir, "lots.db")
+	env.Store, env.JSON = filepath.Join(dir, "lots.db"), false // what it shows is for people
 	d := &demo{env: env, dir: dir, rng: rand.New(rand.NewPCG(7, 2026))}
 	for _, step := range []func(context.Context) error{d.files, d.spring, d.autumn} {
 		if err := step(ctx); err != nil {
@@ -141,7 +141,7 @@ func (t demoDevice) drain(vg float64) float64 {
 func (d *demo) files(context.Context) error {
 	d.env.talk("Two invented lots of the invented part GX-30, 15 ohm from 13.8 V; nothing here was measured.")
 	var long strings.Builder
-	long.WriteString("# Steckbrett, 15 Ohm an 13,8 V, 23 °C\nBauteil;U_GS [V];I_D [mA];U_L [V]\n")
+	long.WriteString("# Steckbrett, 15 Ohm an 13,8 V, 24 °C\nBauteil;U_GS [V];I_D [mA];U_L [V]\n")
 	for _, t := range d.lot("S", 24, 2.92, 0.055) {
 		for _, vg := range d.gates(2.55, 3.75) {
 			id := t.drain(vg)
@@ -272,5 +272,6 @@ Look at %s in a browser, then try:
   gatesill --store %s device show A09 --lot autumn
   gatesill --store %s device exclude A21 --lot autumn --reason 'open'
   gatesill --store %s sort spring --by vgsth --bins 3
-  gatesill import bag1 YOUR-FILE.csv --dry-run`, report.Clean(filepath.Join(d.dir, "autumn.html")), s, s, s)
+  gatesill import bag1 YOUR-FILE.csv --dry-run
+(go install ./cmd/gatesill puts gatesill on your path; until then type go run ./cmd/gatesill in its place.)`, report.Clean(filepath.Join(d.dir, "autumn.html")), s, s, s)
 }

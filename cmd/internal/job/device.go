@@ -67,8 +67,17 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
 	}
 	err = env.view(ctx, func(tx *store.Tx) error {
 		var err error
-		f.Changes, err = tx.Changes("device", d.ID)
-		return err
+		if f.Changes, err = tx.Changes("device", d.ID); err != nil {
+			return err
+		}
+		for _, sw := range f.Device.Sweeps {
+			of, err := tx.Changes("sweep", sw.ID)
+			if err != nil {
+				return err
+			}
+			f.Changes = append(f.Changes, of...)
+		}
+		return nil
 	})
 	if err != nil {
 		return err

@@ -15,6 +15,16 @@ func HelpCodes(env *Env) error {
 	return report.CodesTable(env.Out, fit.Codes, env.style())
 }
 
+// HelpCode explains one code, and reports whether there is such a code.
+func HelpCode(env *Env, code string) (bool, error) {
+	for _, c := range fit.Codes {
+		if c.Code == code {
+			return true, report.CodesTable(env.Out, []fit.CodeInfo{c}, env.style())
+		}
+	}
+	return false, nil
+}
+
 // HelpBench shows a bench file with every key.
 func HelpBench(env *Env) error {
 	_, err := io.WriteString(env.Out, bench.Example)

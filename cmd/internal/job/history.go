@@ -5,7 +5,9 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
+	"gatesill/fit"
 	"gatesill/fit/lot"
 	"gatesill/report"
 	"gatesill/store"
@@ -56,18 +58,63 @@ func history(ctx context.Context, db *store.DB, s *report.Sheet, method string) 
 // shifts a lot as a whole and does not widen it.
 func conditions(s *report.Sheet) []string {
 	var out []string
+	counted(s, func(sw *report.Sweep) {
+		if key := conditionOf(&sw.Condition); !slices.Contains(out, key) {
+			out = append(out, key)
+		}
+	})
+	slices.Sort(out)
+	return out
+}
+
+// conditionOf tells circuit, held drain voltage and kind of current in words.
+func conditionOf(c *record.Condition) string {
+	words := []string{first(string(c.Circuit), "circuit not given")}
+	if c.Circuit == record.Fixed {
+		words = append(words, "V_DS "+first(c.VDS.String(), "not given"))
+	}
+	if c.Pulsed != "" {
+		words = append(words, c.Pulsed)
+	}
+	return strings.Join(words, " ")
+}
+
+// counted calls f for every sweep that counts.
+func counted(s *report.Sheet, f func(*report.Sweep)) {
 	for i := range s.Devices {
-		for j := range s.Devices[i].Sweeps {
-			c := s.Devices[i].Sweeps[j].Condition
-			key := string(c.Circuit) + " " + c.Pulsed
-			if c.Circuit == record.Fixed {
-				key += fmt.Sprintf(" %.2g", c.VDS.Or(math.NaN()))
-			}
-			if !slices.Contains(out, key) {
-				out = append(out, key)
+		d := &s.Devices[i]
+		for j := range d.Sweeps {
+			if sw := &d.Sweeps[j]; !d.Excluded && !sw.Excluded && sw.Result.State != fit.Excluded {
+				f(sw)
 			}
 		}
 	}
-	slices.Sort(out)
-	return out
+}
+
+// warmer is the difference of temperature from which devices are not measured
+// alike: some ten millivolts at the usual -2 to -5 mV/K (common practice, no
+// source).
+const warmer = 5.0 // K
+
+// unlike says when the sweeps of a lot were not taken under like conditions:
+// what then looks like spread, or like two populations, may be the bench's.
+func unlike(s *report.Sheet) (fit.Warning, bool) {
+	var differ []string
+	if all := conditions(s); len(all) > 1 {
+		differ = append(differ, strings.Join(all, "; "))
+	}
+	low, high := math.Inf(1), math.Inf(-1)
+	counted(s, func(sw *report.Sweep) {
+		if t, ok := sw.Condition.Temp.Get(); ok {
+			low, high = min(low, t), max(high, t)
+		}
+	})
+	if high-low > warmer {
+		differ = append(differ, fmt.Sprintf("%.4g to %.4g °C", low, high))
+	}
+	if differ == nil {
+		return fit.Warning{}, false
+	}
+	return fit.Warning{Code: fit.CodeUnlikeConditions, Text: "not all sweeps were taken under like conditions (" + strings.Join(differ, "; ") +
+		"): differences between devices may be the bench's"}, true
 }

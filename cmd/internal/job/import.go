@@ -17,6 +17,7 @@ import (
 
 	"gatesill/acquire/bench"
 	"gatesill/acquire/table"
+	"gatesill/fit"
 	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
@@ -36,6 +37,10 @@ type ImportRequest struct {
 	Stdin                      io.Reader
 }
 
+// rowsAlike is how many points a sweep must have before the same ones under
+// another name are remarkable: single readings are alike by chance.
+const rowsAlike = 5
+
 // fateDry is the fate of a file that was only looked at.
 const fateDry = "looked at, not stored"
 
@@ -53,23 +58,37 @@ func Import(ctx context.Context, env *Env, rq ImportRequest) error {
 		return err
 	}
 	defer im.close()
-	doc := report.ImportDoc{Lot: rq.Lot}
+	doc := report.ImportDoc{Lot: rq.Lot, Files: make([]report.ImportFile, len(rq.Files))}
 	code := ExitDone
-	for _, name := range rq.Files {
-		f, err := im.one(ctx, name)
-		if errors.Is(err, context.Canceled) {
-			return err
-		}
-		if err != nil {
+	todo := make([]int, len(rq.Files))
+	for i := range todo {
+		todo[i] = i
+	}
+	for round := 0; len(todo) > 0; round++ {
+		var later []int
+		for _, i := range todo {
+			f, err := im.one(ctx, rq.Files[i])
+			if errors.Is(err, context.Canceled) {
+				return err
+			}
 			var fatal *Failure
 			if errors.As(err, &fatal) && fatal.Code == ExitUsage {
 				return err
 			}
-			code = ExitFailed
-			f.Fate, f.Reason = report.FateRefused, reason(err)
-			tellError(env, err)
+			// A dead device tells nothing of its columns; files of the same
+			// header may.
+			if round == 0 && len(rq.Files) > 1 && errors.Is(err, table.ErrAmbiguous) {
+				later = append(later, i)
+				continue
+			}
+			if err != nil {
+				code = ExitFailed
+				f.Fate, f.Reason = report.FateRefused, reason(err)
+				tellError(env, err)
+			}
+			doc.Files[i] = f
 		}
-		doc.Files = append(doc.Files, f)
+		todo = later
 	}
 	if err := im.conclude(doc); err != nil {
 		return err
@@ -113,12 +132,14 @@ type importer struct {
 	made    bool // this import made the store
 	stored  bool // at least one file was stored
 	bench   *bench.Bench
-	session string // ID of the session
 	part    record.Part
 	seen    map[string]string // data hash -> device, over the lot and the files of this import
 	next    int               // position of the next sweep
 	same    string            // how the file before was read
 	sameAs  string            // its name
+	answers map[string]string // to questions of the reader, by their text
+
+	settled map[string]map[string]string // columns found by behaviour, by the header's signature
 }
 
 // prepare reads the bench file and looks whether store and lot are there.
@@ -131,10 +152,10 @@ func (im *importer) prepare(ctx context.Context) error {
 		im.bench = b
 		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
 		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			im.env.warn("the calibration of the %s meter %s was due on %s", m.Role, report.Clean(m.Name), m.Due)
+			im.env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
 		}
 	}
-	im.seen = map[string]string{}
+	im.seen, im.answers, im.settled = map[string]string{}, map[string]string{}, map[string]map[string]string{}
 	im.part = record.NewPart(unnamedPart(im.rq.Lot))
 	db, err := im.env.open(ctx, false, im.rq.DryRun)
 	if errors.Is(err, store.ErrNoStore) {
@@ -220,7 +241,7 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 		return out, err
 	} else if ok && !im.rq.Again {
 		out.Fate, out.Layout = report.FateSeen, prior.Layout
-		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; --again imports them once more", report.Clean(prior.Name), prior.ImportedAt[:10])
+		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; nothing was changed. To read the file anew, with what is given now, use --again: the earlier sweeps are set aside", report.Clean(prior.Name), prior.ImportedAt[:10])
 		return out, nil
 	}
 	opt, progress := im.options(ctx, display)
@@ -244,6 +265,10 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	if err != nil {
 		return out, err
 	}
+	if err := currentless(f, sweeps); err != nil {
+		return out, err
+	}
+	im.learn(f)
 	out.Layout, out.Dialect, out.RowsRefused = f.Layout, f.Dialect, f.Refused
 	out.Sweeps = len(sweeps)
 	devices := map[string]bool{}
@@ -336,8 +361,13 @@ func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (p
 // options completes the reader's options for one file.
 func (im *importer) options(ctx context.Context, name string) (table.Options, *progress) {
 	opt := im.rq.Table
-	opt.Ask = im.env.Ask
+	if im.env.Ask != nil {
+		opt.Ask = im.ask
+	}
 	opt.Remembered = func(signature string) (m map[string]string, ok bool) {
+		if m, ok := im.settled[signature]; ok {
+			return m, true
+		}
 		if im.db == nil {
 			return nil, false
 		}
@@ -350,6 +380,19 @@ func (im *importer) options(ctx context.Context, name string) (table.Options, *p
 	p := newProgress(im.env, report.Clean(name))
 	opt.Progress = p.At
 	return opt, p
+}
+
+// ask puts a question once for all files of the import that raise it in the
+// same words.
+func (im *importer) ask(q table.Question) (string, error) {
+	if answer, ok := im.answers[q.Text]; ok {
+		return answer, nil
+	}
+	answer, err := im.env.Ask(q)
+	if err == nil {
+		im.answers[q.Text] = answer
+	}
+	return answer, err
 }
 
 // ofLot picks the sweeps that belong to the lot. A file with a lot column gives
@@ -386,24 +429,6 @@ func (im *importer) ofLot(f *table.File) ([]table.Sweep, map[string]int, error) 
 	}
 	delete(byLot, im.rq.Lot)
 	return out, byLot, nil
-}
-
-// tell warns of what the reader noticed and of rows known under another name.
-func (im *importer) tell(f *table.File, sweeps []table.Sweep) {
-	for _, r := range f.Remarks {
-		im.env.warn("%s: %s [%s]", report.Clean(f.Name), r.Text, r.Code)
-	}
-	noCircuit := false
-	for i := range sweeps {
-		s := &sweeps[i]
-		noCircuit = noCircuit || s.Condition.Circuit == record.NoCircuit && s.Direction != record.Spot
-		if other, ok := im.seen[s.DataHash]; ok && other != s.Device {
-			im.env.warn("%s: device %s has the same rows as device %s [same-rows]", report.Clean(f.Name), report.Clean(s.Device), report.Clean(other))
-		}
-	}
-	if noCircuit {
-		im.env.warn("%s: circuit not given, so only constant-current values will be had; --circuit load, diode or fixed tells it [no-circuit]", report.Clean(f.Name))
-	}
 }
 
 // merge fills what a leaves unknown from b.

@@ -3,8 +3,10 @@ package job
 import (
 	"context"
 	"errors"
+	"strings"
 
 	"gatesill/acquire/table"
+	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
 )
@@ -18,10 +20,13 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		}
 		im.db, im.made = db, true
 	}
-	session, next := im.session, im.next
+	next := im.next
 	err := im.db.Update(ctx, func(tx *store.Tx) error {
 		lot, err := im.lot(tx)
 		if err != nil {
+			return err
+		}
+		if err := im.setAside(tx, lot, f); err != nil {
 			return err
 		}
 		src := record.Source{LotID: lot.ID, Name: f.Name, Hash: f.Hash, Size: f.Size, Layout: f.Layout, Dialect: mustJSON(f.Dialect), ImportedAt: record.Now()}
@@ -32,14 +37,15 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		if err != nil {
 			return err
 		}
-		if session, err = im.sessionFor(tx, lot, sweeps); err != nil {
+		sessions, err := im.sessions(tx, lot, sweeps)
+		if err != nil {
 			return err
 		}
 		rows := make([]record.Sweep, len(sweeps))
 		for i := range sweeps {
 			next++
 			r := sweeps[i].Sweep
-			r.LotID, r.DeviceID, r.SessionID, r.SourceID, r.Position = lot.ID, devices[sweeps[i].Device].ID, session, src.ID, next
+			r.LotID, r.DeviceID, r.SessionID, r.SourceID, r.Position = lot.ID, devices[sweeps[i].Device].ID, sessions[i], src.ID, next
 			if im.bench != nil {
 				r.Instruments = im.bench.Meters
 			}
@@ -56,9 +62,40 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 	if err != nil {
 		return storeFailure(err)
 	}
-	im.session, im.next, im.stored = session, next, true
+	im.next, im.stored = next, true
 	for i := range sweeps {
 		im.seen[sweeps[i].DataHash] = sweeps[i].Device
+	}
+	return nil
+}
+
+// setAside excludes the sweeps of earlier imports of the same bytes, so that
+// reading a file again corrects what was said wrongly the first time. The rows
+// stay, and the audit trail says why.
+func (im *importer) setAside(tx *store.Tx, lot record.Lot, f *table.File) error {
+	sources, err := tx.Sources(lot.ID)
+	if err != nil {
+		return err
+	}
+	same := map[string]bool{}
+	for _, s := range sources {
+		same[s.ID] = s.Hash == f.Hash
+	}
+	sweeps, err := tx.Sweeps(lot.ID, false)
+	if err != nil {
+		return err
+	}
+	n := 0
+	for _, s := range sweeps {
+		if same[s.SourceID] && !s.Excluded {
+			n++
+			if err := tx.ExcludeSweep(s.ID, true, "imported again from the same file"); err != nil {
+				return err
+			}
+		}
+	}
+	if n > 0 {
+		im.env.talk("%s: %s of its earlier import set aside", report.Clean(f.Name), count(n, "sweep"))
 	}
 	return nil
 }
@@ -115,45 +152,64 @@ func (im *importer) devices(tx *store.Tx, lot record.Lot, sweeps []table.Sweep) 
 	return byName, nil
 }
 
-// sessionFor gives the session of this import: the one of that name, or a new
-// one when operator, fixture, bench or name were given, else none.
-func (im *importer) sessionFor(tx *store.Tx, lot record.Lot, sweeps []table.Sweep) (string, error) {
-	if im.session != "" {
-		return im.session, nil
+// sessions gives the session of every sweep: one for each operator, fixture and
+// day, "" where neither they nor a bench or a name is known. A session of the
+// same facts that the lot has already is used again.
+func (im *importer) sessions(tx *store.Tx, lot record.Lot, sweeps []table.Sweep) ([]string, error) {
+	bench := ""
+	if im.bench != nil {
+		bench = im.bench.Name
+		if _, err := tx.AddBench(bench, im.bench.Text); err != nil {
+			return nil, err
+		}
 	}
-	s := record.Session{Name: im.rq.Session, Operator: im.rq.Operator, Fixture: im.rq.Fixture, StartedAt: record.Now()}
+	have, err := tx.Sessions(lot.ID)
+	if err != nil {
+		return nil, err
+	}
+	known := map[sessionFacts]string{}
+	for _, h := range have {
+		known[sessionFacts{h.Name, h.Bench, h.Operator, h.Fixture, day(h.StartedAt)}] = h.ID
+	}
+	ids := make([]string, len(sweeps))
 	for i := range sweeps {
 		t := &sweeps[i]
-		if s.Operator == "" {
-			s.Operator = t.Operator
+		facts := sessionFacts{im.rq.Session, bench, first(im.rq.Operator, t.Operator), first(im.rq.Fixture, t.Fixture), day(t.MeasuredAt)}
+		if facts == (sessionFacts{day: facts.day}) {
+			continue
 		}
-		if s.Fixture == "" {
-			s.Fixture = t.Fixture
-		}
-		if t.Condition.TempOf == "ambient" {
-			s.Ambient = s.Ambient.Else(t.Condition.Temp)
-		}
-	}
-	if im.bench != nil {
-		s.Bench = im.bench.Name
-		if _, err := tx.AddBench(im.bench.Name, im.bench.Text); err != nil {
-			return "", err
-		}
-	}
-	if s.Name == "" && s.Operator == "" && s.Fixture == "" && s.Bench == "" {
-		return "", nil
-	}
-	if s.Name != "" {
-		have, err := tx.Sessions(lot.ID)
-		if err != nil {
-			return "", err
-		}
-		for _, h := range have {
-			if h.Name == s.Name && h.Bench == s.Bench && h.Operator == s.Operator && h.Fixture == s.Fixture {
-				return h.ID, nil
+		id, ok := known[facts]
+		if !ok {
+			s := record.Session{Name: facts.name, Bench: facts.bench, Operator: facts.operator, Fixture: facts.fixture, StartedAt: t.MeasuredAt}
+			if t.Condition.TempOf == "ambient" {
+				s.Ambient = t.Condition.Temp
 			}
+			if err := tx.AddSession(&s); err != nil {
+				return nil, err
+			}
+			id = s.ID
+			known[facts] = id
+		}
+		ids[i] = id
+	}
+	return ids, nil
+}
+
+// sessionFacts tell one session from another.
+type sessionFacts struct{ name, bench, operator, fixture, day string }
+
+// day is the date of a stamp or a bare date.
+func day(stamp string) string {
+	date, _, _ := strings.Cut(stamp, "T")
+	return date
+}
+
+// first is the first text that is not empty.
+func first(texts ...string) string {
+	for _, t := range texts {
+		if t != "" {
+			return t
 		}
 	}
-	err := tx.AddSession(&s)
-	return s.ID, err
+	return ""
 }

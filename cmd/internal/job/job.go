@@ -1,7 +1,8 @@
-// Package job holds the jobs of the command line end to end, one file each. It
-// is the only place that knows acquire, store, fit and report together.
+// Package job does what a verb asks for from beginning to end: it reads through
+// acquire, keeps in store, has fit compute and report lay out. No other package
+// joins all four.
 //
-// It has no SQL and no numerics of its own, and it parses no flags.
+// SQL and numerics stay out of it, and it parses no flags.
 package job
 
 import (
@@ -38,9 +39,9 @@ type Env struct {
 // Exit codes, as promised to scripts.
 const (
 	ExitDone        = 0
-	ExitFailed      = 1   // the job failed, or some of several files were refused
+	ExitFailed      = 1   // something was refused or went wrong
 	ExitUsage       = 2   // used wrongly
-	ExitNo          = 3   // the answer is 'no' and --fail asked for that
+	ExitNo          = 3   // --fail, and the answer is no
 	ExitInstrument  = 4   // instrument or port trouble
 	ExitInterrupted = 130 // Ctrl-C
 )
@@ -170,35 +171,56 @@ func lotOf(tx *store.Tx, name string) (record.Lot, record.Part, error) {
 }
 
 // WriteFile writes a file through a neighbour that is renamed at the end, so
-// that a failed job leaves the old file as it was. "-" is stdout.
-func (e *Env) WriteFile(path string, write func(io.Writer) error) (err error) {
+// that a failed job leaves the old file as it was. A link is followed; what is
+// no regular file (a device, a pipe) is written to as it is. "-" is stdout.
+func (e *Env) WriteFile(path string, write func(io.Writer) error) error {
 	if path == "-" {
 		return write(e.Out)
 	}
-	if st, serr := os.Stat(path); serr == nil && st.IsDir() {
+	if real, err := filepath.EvalSymlinks(path); err == nil {
+		path = real
+	}
+	mode := os.FileMode(0o644)
+	switch st, err := os.Stat(path); {
+	case err != nil:
+	case st.IsDir():
 		return failed("name a file in it", "%s is a folder", path)
+	case !st.Mode().IsRegular():
+		return writeInto(path, write)
+	default:
+		mode = st.Mode().Perm()
 	}
 	f, err := os.CreateTemp(filepath.Dir(path), ".gatesill-*")
 	if err != nil {
 		return failed("", "%s: %w", path, err)
 	}
-	defer func() {
-		if err != nil {
-			os.Remove(f.Name())
-		}
-	}()
-	if err = write(f); err != nil {
-		f.Close()
-		return err
+	err = write(f)
+	if cerr := f.Chmod(mode); err == nil && !errors.Is(cerr, errors.ErrUnsupported) {
+		err = cerr
 	}
-	if err = f.Chmod(0o644); err != nil && !errors.Is(err, errors.ErrUnsupported) {
-		f.Close()
-		return failed("", "%s: %w", path, err)
+	if cerr := f.Close(); err == nil {
+		err = cerr
 	}
-	if err = f.Close(); err != nil {
-		return failed("", "%s: %w", path, err)
+	if err == nil {
+		err = os.Rename(f.Name(), path)
 	}
-	if err = os.Rename(f.Name(), path); err != nil {
+	if err != nil {
+		return errors.Join(failed("", "%s: %w", path, err), os.Remove(f.Name()))
+	}
+	return nil
+}
+
+// writeInto writes to a device or a pipe.
+func writeInto(path string, write func(io.Writer) error) error {
+	f, err := os.OpenFile(path, os.O_WRONLY, 0)
+	if err != nil {
+		return failed("", "%w", err)
+	}
+	err = write(f)
+	if cerr := f.Close(); err == nil {
+		err = cerr
+	}
+	if err != nil {
 		return failed("", "%s: %w", path, err)
 	}
 	return nil

@@ -21,19 +21,21 @@ func recognised(w io.Writer, f *table.File, sweeps []table.Sweep, left map[strin
 	line := func(label, format string, args ...any) {
 		fmt.Fprintf(&b, "  %-10s %s\n", label, report.Clean(fmt.Sprintf(format, args...)))
 	}
-	fmt.Fprintf(&b, "%s\n", report.Clean(f.Name))
-	if like == "" {
-		dialect(line, f, sweeps)
-	} else {
-		line("text", "read like %s", like)
-	}
 	devices, points := map[string]bool{}, 0
 	for i := range sweeps {
 		devices[sweeps[i].Device] = true
 		points += sweeps[i].Len()
 	}
-	line("devices", "%d, in %s of %s", len(devices), count(len(sweeps), "sweep"), count(points, "point"))
-	line("rows", "%d, of them %d refused", f.Rows, f.Refused)
+	what := fmt.Sprintf("%d, in %s of %s", len(devices), count(len(sweeps), "sweep"), count(points, "point"))
+	rows := fmt.Sprintf("%d, of them %d refused", f.Rows, f.Refused)
+	if like != "" {
+		fmt.Fprintf(&b, "%s: read like %s; devices %s; rows %s\n", report.Clean(f.Name), report.Clean(like), what, rows)
+	} else {
+		fmt.Fprintf(&b, "%s\n", report.Clean(f.Name))
+		dialect(line, f, sweeps)
+		line("devices", "%s", what)
+		line("rows", "%s", rows)
+	}
 	if f.States > 0 {
 		line("", "%s without a number (over range or empty), kept as such", count(f.States, "cell"))
 	}
@@ -97,7 +99,10 @@ func columnsShown(cs []table.ColumnFound) []string {
 			continue
 		}
 		text := fmt.Sprintf("%d %q: %s", c.Number, c.Header, c.As)
-		if c.Unit != "" {
+		switch {
+		case strings.HasPrefix(c.Unit, "in "): // unit in the cells
+			text += ", unit " + c.Unit
+		case c.Unit != "":
 			text += " in " + c.Unit
 		}
 		if c.How != "" && c.How != "header" {

@@ -76,7 +76,7 @@ func Sort(ctx context.Context, env *Env, name string, o SheetOptions, rq SortReq
 	if err != nil {
 		return err
 	}
-	opt, err := sortOptions(&s, rq)
+	opt, err := sortOptions(env, &s, rq)
 	if err != nil {
 		return err
 	}
@@ -98,12 +98,15 @@ func Sort(ctx context.Context, env *Env, name string, o SheetOptions, rq SortReq
 func sortSheet(s *report.Sheet, opt lot.SortOptions) error {
 	sorting, err := lot.SortInto(lotDevices(s), opt)
 	if err == nil {
+		if w, ok := unlike(s); ok {
+			sorting.Warnings = append([]fit.Warning{w}, sorting.Warnings...)
+		}
 		s.Sorting = &sorting
 	}
 	return err
 }
 
-func sortOptions(s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
+func sortOptions(env *Env, s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
 	opt := lot.SortOptions{By: s.SortedBy, Bins: rq.Bins}
 	unit := "V"
 	if rq.By != "" {
@@ -129,6 +132,9 @@ func sortOptions(s *report.Sheet, rq SortRequest) (lot.SortOptions, error) {
 		}
 		if w <= 0 {
 			return opt, Usage("--width 50mV", "--width: %s, must be above 0", rq.Width)
+		}
+		if unit == "V" && w >= 5 {
+			env.warn("bins of %s V: a bare number is in volts, 50 mV is written 50mV", report.Clean(rq.Width))
 		}
 		opt.Width = w
 	}
@@ -199,6 +205,9 @@ func Export(ctx context.Context, env *Env, name, path string, points bool, o She
 
 // Backup copies the store, also while something writes to it.
 func Backup(ctx context.Context, env *Env, path string) error {
+	if path == "-" {
+		return Usage("gatesill backup FILE", "backup: a copy needs a file of its own, not stdout")
+	}
 	db, err := env.open(ctx, false, false)
 	if err != nil {
 		return err
@@ -209,6 +218,9 @@ func Backup(ctx context.Context, env *Env, path string) error {
 	p.Done()
 	if err != nil {
 		return storeFailure(err)
+	}
+	if env.JSON {
+		return report.BackupJSON(env.Out, db.Path(), path)
 	}
 	env.talk("copy of %s: %s", report.Clean(db.Path()), report.Clean(path))
 	return nil

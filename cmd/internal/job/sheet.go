@@ -144,181 +144,15 @@ func placeSweeps(s *report.Sheet, sweeps []record.Sweep) {
 	}
 }
 
-// currents settles test current and idle current of the sheet.
-func currents(s *report.Sheet, at record.Num) {
-	s.IdleCurrent = s.Part.IdleCurrent.Float()
-	spot, gm := spotCurrents(s)
-	switch {
-	case at.IsKnown():
-		s.TestCurrent, s.TestBasis = math.Abs(at.Float()), "--at"
-	case s.Part.TestCurrent.IsKnown():
-		s.TestCurrent, s.TestBasis = s.Part.TestCurrent.Float(), "part"
-	case spot.IsKnown():
-		s.TestCurrent, s.TestBasis = spot.Float(), "spot list"
-	default:
-		s.TestCurrent, s.TestBasis = defaultTestCurrent, "default"
-	}
-	if !s.Part.IdleCurrent.IsKnown() && gm.IsKnown() {
-		s.IdleCurrent = gm.Float() // a list that states g_m at a current means that as the idle current
-	}
-}
-
-// spotCurrents gives the one current at which all spots of the lot were taken,
-// and the one at which their transconductance was; unknown when there are
-// curves, or several currents.
-func spotCurrents(s *report.Sheet) (spot, gm record.Num) {
-	one := func(have record.Num, x float64, first *bool) record.Num {
-		x = math.Abs(x)
-		if *first {
-			*first = false
-			return record.Known(x)
-		}
-		if v, ok := have.Get(); ok && math.Abs(v-x) <= 0.1*x {
-			return have
-		}
-		return record.Num{}
-	}
-	firstSpot, firstGm := true, true
-	for _, d := range s.Devices {
-		for _, sw := range d.Sweeps {
-			if sw.Direction != record.Spot {
-				return record.Num{}, record.Num{}
-			}
-			id, vg, g := sw.Values(record.ID), sw.Values(record.VG), sw.Values(record.GM)
-			for i := range id {
-				if math.IsNaN(id[i]) {
-					continue
-				}
-				if vg != nil && !math.IsNaN(vg[i]) {
-					spot = one(spot, id[i], &firstSpot)
-				}
-				if g != nil && !math.IsNaN(g[i]) {
-					gm = one(gm, id[i], &firstGm)
-				}
-			}
-		}
-	}
-	return spot, gm
-}
-
-// curveOf hands the columns of a sweep to the fit, overload as ±Inf.
-func curveOf(sw *record.Sweep) fit.Curve {
-	c := fit.Curve{
-		Vg: sw.Values(record.VG), Id: sw.Values(record.ID), Vl: sw.Values(record.VL),
-		Vd: sw.Values(record.VD), Vdd: sw.Values(record.VDD), Gm: sw.Values(record.GM),
-	}
-	over := func(xs *[]float64, i int, sign int) {
-		if i < len(*xs) {
-			(*xs)[i] = math.Inf(sign)
-		}
-	}
-	for _, m := range sw.Marks {
-		sign := 1
-		switch m.State {
-		case record.Overload:
-		case record.Underload:
-			sign = -1
-		default:
-			continue
-		}
-		switch m.Quantity {
-		case record.VG:
-			over(&c.Vg, m.Index, sign)
-		case record.ID:
-			over(&c.Id, m.Index, sign)
-		case record.VL:
-			over(&c.Vl, m.Index, sign)
-		case record.VD:
-			over(&c.Vd, m.Index, sign)
-		case record.VDD:
-			over(&c.Vdd, m.Index, sign)
-		}
-	}
-	if c.Vg == nil {
-		c.Vg = nans(sw.Len())
-	}
-	return c
-}
-
-func nans(n int) []float64 {
-	xs := make([]float64, n)
-	for i := range xs {
-		xs[i] = math.NaN()
-	}
-	return xs
-}
-
-// setupOf says under what a sweep was taken and what is asked of it.
-func setupOf(s *report.Sheet, sw *record.Sweep) fit.Setup {
-	c := sw.Condition
-	return fit.Setup{
-		Circuit: fit.Circuit(c.Circuit), PChannel: s.Part.Channel == record.PChannel, Depletion: s.Part.Mode == record.Depletion,
-		OffV: offVoltage(s.Part),
-		RL:   c.RL.Float(), RLTol: c.RLTol.Float(), Vdd: c.VDD.Float(), Vds: c.VDS.Float(), Burden: burden(sw),
-		TestCurrent: s.TestCurrent, IdleCurrent: s.IdleCurrent, MaxID: s.Part.MaxID.Float(), VgsthMax: s.Part.VgsthMax.Float(),
-		Gate: accuracy(sw, "gate"), Current: accuracy(sw, "current"), Load: accuracy(sw, "load"), Drain: accuracy(sw, "drain"),
-		Spot: sw.Direction == record.Spot, Temperature: c.Temp.Float(),
-	}
-}
-
-// offVoltage is the part's, 0 for an enhancement part of which none is known,
-// NaN for such a depletion part.
-func offVoltage(p record.Part) float64 {
-	if p.Mode == record.Enhancement {
-		return p.OffVoltage.Or(0)
-	}
-	return p.OffVoltage.Float()
-}
-
-func burden(sw *record.Sweep) float64 {
-	if sw.Condition.Burden.IsKnown() {
-		return sw.Condition.Burden.Float()
-	}
-	if sw.Condition.Ammeter == "none" {
-		return 0
-	}
-	for _, m := range sw.Instruments {
-		if m.Role != "current" {
-			continue
-		}
-		for _, r := range m.Ranges {
-			if r.Burden.IsKnown() {
-				return r.Burden.Float()
-			}
-		}
-	}
-	return math.NaN()
-}
-
-// divisors turn the limit of an accuracy statement into a standard uncertainty
-// (JCGM 100:2008 4.3.7 for a limit, 4.3.4 for a stated coverage).
-var divisors = map[string]float64{"limit": math.Sqrt(3), "k=2": 2, "99 %": 2.5758293035489}
-
-func accuracy(sw *record.Sweep, role string) []fit.Accuracy {
-	var out []fit.Accuracy
-	for _, m := range sw.Instruments {
-		if m.Role != role {
-			continue
-		}
-		div := divisors[m.Coverage]
-		if div == 0 {
-			div = math.Sqrt(3)
-		}
-		for _, r := range m.Ranges {
-			out = append(out, fit.Accuracy{Top: r.Top, Percent: r.Percent, Counts: r.Counts, Resolution: r.Resolution, Noise: r.Noise.Or(0), Divisor: div})
-		}
-	}
-	return out
-}
-
 // fitSheet fits every sweep, on all cores.
 func fitSheet(ctx context.Context, s *report.Sheet, method string) error {
+	digits := lastDigitsOf(s)
 	var wg sync.WaitGroup
 	workers := runtime.GOMAXPROCS(0)
 	for w := range workers {
 		wg.Go(func() {
 			for i := w; i < len(s.Devices) && ctx.Err() == nil; i += workers {
-				fitDevice(s, &s.Devices[i], method)
+				fitDevice(s, &s.Devices[i], method, digits)
 			}
 		})
 	}
@@ -327,17 +161,25 @@ func fitSheet(ctx context.Context, s *report.Sheet, method string) error {
 }
 
 // fitDevice fits the sweeps of one device and joins them.
-func fitDevice(s *report.Sheet, d *report.Device, method string) {
+func fitDevice(s *report.Sheet, d *report.Device, method string, digits lastDigits) {
 	var rs []fit.Result
 	var dirs []string
+	seen := map[string]bool{}
 	for i := range d.Sweeps {
 		sw := &d.Sweeps[i]
-		if sw.Excluded {
+		why := sw.Why
+		if !sw.Excluded && sw.Len() >= rowsAlike && seen[sw.DataHash] {
+			why = "the same readings as an earlier sweep of this device, counted once"
+		} else if !sw.Excluded {
+			why = ""
+		}
+		if sw.Excluded || why != "" {
 			sw.Result = fit.NewResult()
-			sw.Result.State, sw.Result.Why = fit.Excluded, sw.Why
+			sw.Result.State, sw.Result.Why = fit.Excluded, why
 			continue
 		}
-		setup := setupOf(s, &sw.Sweep)
+		seen[sw.DataHash] = true
+		setup := setupOf(s, &sw.Sweep, digits)
 		sw.Result = fit.One(sw.Curve, setup)
 		sw.Result.Choose(method)
 		rs = append(rs, sw.Result)
@@ -352,8 +194,8 @@ func fitDevice(s *report.Sheet, d *report.Device, method string) {
 	}
 }
 
-// sortedBy is the quantity that sorting uses: the gate bias at the idle current
-// when the lot has one, else the threshold.
+// sortedBy is the quantity that sorting uses: where the lot has an idle current,
+// the gate bias there; otherwise the threshold.
 func sortedBy(s *report.Sheet) fit.Key {
 	if math.IsNaN(s.IdleCurrent) {
 		return fit.KeyVgsth
@@ -375,6 +217,9 @@ func judge(s *report.Sheet, limit float64, known *lot.Known) {
 		SortedBy: s.SortedBy, K: limit, Known: known, TestCurrent: s.TestCurrent, PChannel: s.Part.Channel == record.PChannel,
 		VgsthMin: s.Part.VgsthMin.Float(), VgsthMax: s.Part.VgsthMax.Float(),
 	})
+	if w, ok := unlike(s); ok {
+		s.Spread.Warnings = append([]fit.Warning{w}, s.Spread.Warnings...)
+	}
 }
 
 func lotDevices(s *report.Sheet) []lot.Device {
@@ -410,7 +255,7 @@ func estimates(s *report.Sheet, method string) []record.Estimate {
 	for i := range s.Devices {
 		for j := range s.Devices[i].Sweeps {
 			sw := &s.Devices[i].Sweeps[j]
-			if sw.Excluded {
+			if sw.Result.State == fit.Excluded {
 				continue
 			}
 			est := record.Estimate{

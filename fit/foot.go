@@ -1,0 +1,45 @@
+package fit
+
+import "math"
+
+const (
+	// footShare of the greatest current bounds the foot of a sweep, and footLeast
+	// is the fewest points there that tell of noise (judgement).
+	footShare = 1e-3
+	footLeast = 8
+)
+
+// footNoise is the standard deviation, A, of the currents at the foot of the
+// sweep, where the part is off and hardly anything but the meter moves: 0 with
+// too few points there. The median of the second differences does not mind the
+// beginning of the rise.
+//
+// Source: second differences as in T. Gasser, L. Sroka and C. Jennen-Steinmetz,
+// Biometrika 73 (1986) 625–633 (from memory). Checked: TestFootNoise.
+func (w *work) footNoise() float64 {
+	top := 0.0
+	for j := range w.pts {
+		top = math.Max(top, w.pts[j].i)
+	}
+	n := 0
+	for n < len(w.pts) && w.pts[n].i < footShare*top {
+		n++
+	}
+	if n < footLeast {
+		return 0
+	}
+	d := make([]float64, 0, n-2)
+	for j := 1; j < n-1; j++ {
+		d = append(d, math.Abs(w.pts[j].i-(w.pts[j-1].i+w.pts[j+1].i)/2))
+	}
+	return 1.4826 * median(d) / math.Sqrt(1.5)
+}
+
+// raiseToFoot gives no point a smaller uncertainty than the meter shows at the
+// foot: its last digits are not its noise.
+func (w *work) raiseToFoot() {
+	noise := w.footNoise()
+	for j := range w.pts {
+		w.pts[j].u = math.Max(w.pts[j].u, noise)
+	}
+}
