@@ -33,8 +33,9 @@ func smallestGroup(n int) int {
 // at its greatest over all divisions. Far single values at the ends are set aside
 // first; else one wild reading would hide any division. The score alone takes
 // every skewed lot for two, so the groups must also look like two: means three
-// spreads apart, and between them a valley that holds at most half as many
-// values as as wide a piece in the middle of the smaller group.
+// spreads apart, and between them a valley that holds at most a third (in lots of
+// 100 and more, where counts are surer, half) as many values as as wide a piece
+// in the middle of the smaller group.
 //
 // Source: classification likelihood, Scott and Symons, "Clustering methods based
 // on likelihood ratio criteria", Biometrics 27 (1971) 387-397 (from memory); the
@@ -142,6 +143,9 @@ func valley(s []float64, at, small int) (p parting, ok bool) {
 	w := between / 3
 	here := within(s, (p.below+p.above)/2, w)
 	there := within(s, smaller, w)
+	if len(s) < 100 {
+		return p, 3*here <= there
+	}
 	return p, 2*here <= there
 }
 

@@ -169,5 +169,5 @@ func estimatorWords(n int) string {
 		return text + fmt.Sprintf("; a plain 3-sigma rule is blind here, because with %d devices none can lie more than %.2f ordinary standard deviations from the mean",
 			n, float64(n-1)/math.Sqrt(float64(n)))
 	}
-	return text + "; an odd device widens the ordinary standard deviation and hides itself in it"
+	return text + "; an odd device widens the ordinary standard deviation and hides itself in it; limits suppose a lot spread like a normal distribution, one with heavier tails gets more flags"
 }

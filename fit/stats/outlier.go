@@ -51,7 +51,8 @@ func FencesOf(x []float64, rule QuantileRule) Fences {
 }
 
 // UpperT is the value that Student's t with df degrees of freedom exceeds with
-// probability p (0 < p < 1); NaN outside, and for df <= 0.
+// probability p (0 < p < 1); NaN outside, and for df <= 0. Below p = 1e-10 it is
+// good to five digits only.
 func UpperT(p, df float64) float64 {
 	if !(p > 0 && p < 1) || !(df > 0) {
 		return math.NaN()

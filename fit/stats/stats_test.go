@@ -240,3 +240,17 @@ func TestMADAgainstSorting(t *testing.T) {
 		near(t, "MAD", MAD(x), Median(d), 1e-15)
 	}
 }
+
+// The quick bound must never exceed the critical value it stands in for. At
+// alpha 1e-6 and ten thousand values it would: for probabilities below 1e-10 the t
+// quantile of the library is off from the sixth digit on.
+func TestESDBound(t *testing.T) {
+	for n := 3; n < 30_000; n += 1 + n/7 {
+		for _, alpha := range []float64{0.3, 0.05, 0.008, 0.001, 1e-5} {
+			bound, critical := esdAtLeast(n, alpha), esdCritical(n, alpha)
+			if !(bound <= critical) {
+				t.Errorf("n=%d, alpha %v: bound %v above critical value %v", n, alpha, bound, critical)
+			}
+		}
+	}
+}
