@@ -3,7 +3,6 @@ package lot
 import (
 	"math"
 
-	"gatesill/fit"
 	"gatesill/fit/stats"
 )
 
@@ -112,6 +111,7 @@ func bandOf(c *column, k float64, quantities int) band {
 	b.widen(c, math.Max(b.sd, even))
 	b.narrow(c, esdLevel/float64(quantities))
 	b.allowSkew(c)
+	b.takeInCrowd(c)
 	return b
 }
 
@@ -197,29 +197,6 @@ func bandKnown(c *column, sd float64, devices int, k float64, quantities int) ba
 	b.widen(c, b.sd)
 	b.allowSkew(c)
 	return b
-}
-
-// allowSkew moves the limit on the side of low gain out to where it would be if
-// the gain factor, and not its logarithm, were spread like a normal distribution:
-// which of the two a lot is cannot be told from some hundred devices, and in
-// large lots the wrong one makes false alarms (spread 8 %, 5,000 devices: 15 % of
-// lots). Transconductance and gate span go with the root of the gain factor.
-func (b *band) allowSkew(c *column) {
-	out := func(reach, root float64) float64 {
-		const most = 0.8 // beyond, the two scales have little in common
-		if r := root * reach; r < most {
-			return -math.Log1p(-r) / root
-		}
-		return math.Max(reach, -math.Log1p(-most)/root)
-	}
-	switch c.key {
-	case fit.KeyBeta:
-		b.low = b.mid - out(b.mid-b.low, 1)
-	case fit.KeyGmMax, fit.KeyGmIdle:
-		b.low = b.mid - out(b.mid-b.low, 2)
-	case KeySpan:
-		b.high = b.mid + out(b.high-b.mid, 2)
-	}
 }
 
 // outside reports whether device i lies beyond the limits. Where its own reading
