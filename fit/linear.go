@@ -55,7 +55,7 @@ type resistive struct {
 // declines where the voltage at the drain is not known well enough.
 func (w *work) resistiveCurve() (*resistive, bool) {
 	if len(w.c.Vd) == 0 && math.IsNaN(w.s.Burden) && w.s.Vds < unreadVds {
-		w.warn(CodeBenchLimited, "V_DS is below 1 V, was not read at the drain, and the ammeter's burden is not known: no extrapolated threshold.")
+		w.warn(CodeBenchLimited, "V_DS is below 1 V, was not read at the drain, and the ammeter's burden is not known (--ammeter none says that there is none, a bench file says how much): no extrapolated threshold.")
 		return nil, false
 	}
 	s := w.forSlopes(w.scatterNear(len(w.pts) * 2 / 3))

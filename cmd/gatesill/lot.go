@@ -29,7 +29,11 @@ func lotCmd(env *job.Env) *cobra.Command {
 		Use: "edit LOT", Short: "Change a lot or its part; old values are kept", Args: exactly(1),
 		Example: "  gatesill lot edit bag1 --idle-current 100mA --reason 'new amplifier'",
 		RunE: func(cmd *cobra.Command, args []string) error {
-			return job.LotEditJob(cmd.Context(), env, args[0], lotEdit.edit(cmd), reason)
+			e := lotEdit.edit(cmd)
+			if e == (job.LotEdit{}) {
+				return job.Usage("gatesill help lot edit", "lot edit: nothing to change was given")
+			}
+			return job.LotEditJob(cmd.Context(), env, args[0], e, reason)
 		},
 		ValidArgsFunction: lots(env, false),
 	}

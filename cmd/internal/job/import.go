@@ -150,6 +150,9 @@ func (im *importer) prepare(ctx context.Context) error {
 			return failed("gatesill help bench-file shows every key", "%w", err)
 		}
 		im.bench = b
+		if given := merge(im.rq.Table.Given, b.Given); given != merge(b.Given, im.rq.Table.Given) {
+			im.env.warn("flags and bench file %s differ about the circuit; the flags were taken [%s]", report.Clean(im.rq.Bench), fit.CodeFlagWins)
+		}
 		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
 		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
 			im.env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
@@ -230,7 +233,7 @@ func (im *importer) close() {
 // one reads and stores one file.
 func (im *importer) one(ctx context.Context, name string) (report.ImportFile, error) {
 	out := report.ImportFile{File: name}
-	data, display, err := im.bytes(name)
+	data, display, err := im.bytes(ctx, name)
 	if err != nil {
 		return out, err
 	}
@@ -302,7 +305,7 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 }
 
 // bytes reads stdin; for a file it returns nil.
-func (im *importer) bytes(name string) ([]byte, string, error) {
+func (im *importer) bytes(ctx context.Context, name string) ([]byte, string, error) {
 	if name != "-" {
 		return nil, filepath.Base(name), nil
 	}
@@ -310,7 +313,7 @@ func (im *importer) bytes(name string) ([]byte, string, error) {
 		return nil, stdinName, Usage("", "stdin can be read only once")
 	}
 	const limit = 1 << 30
-	b, err := io.ReadAll(io.LimitReader(im.rq.Stdin, limit+1))
+	b, err := readAll(ctx, io.LimitReader(im.rq.Stdin, limit+1))
 	if err != nil {
 		return nil, stdinName, fmt.Errorf("stdin: %w", err)
 	}
@@ -321,6 +324,22 @@ func (im *importer) bytes(name string) ([]byte, string, error) {
 		b = []byte{}
 	}
 	return b, stdinName, nil
+}
+
+// readAll is io.ReadAll that gives up when the job is interrupted: nobody can
+// wake a read of a terminal or a pipe.
+func readAll(ctx context.Context, r io.Reader) (b []byte, err error) {
+	done := make(chan struct{})
+	go func() {
+		defer close(done)
+		b, err = io.ReadAll(r)
+	}()
+	select {
+	case <-ctx.Done():
+		return nil, ctx.Err()
+	case <-done:
+		return b, err
+	}
 }
 
 // seenBefore looks for the same bytes among the lot's sources.

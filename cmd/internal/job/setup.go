@@ -214,3 +214,22 @@ func lastDigitsOf(s *report.Sheet) lastDigits {
 	}
 	return out
 }
+
+// overdue warns of meters whose calibration was due before a sweep was taken, or
+// imported where its day is not known.
+func overdue(s *report.Sheet, d *report.Device) (fit.Warning, bool) {
+	imported := map[string]string{}
+	for _, src := range s.Sources {
+		imported[src.ID] = src.ImportedAt
+	}
+	for i := range d.Sweeps {
+		sw := &d.Sweeps[i]
+		on := day(first(sw.MeasuredAt, imported[sw.SourceID]))
+		for _, m := range sw.Instruments {
+			if m.Due != "" && m.Due < on {
+				return fit.Warning{Code: fit.CodeOverdue, Text: "The calibration of the " + m.Role + " meter was due on " + m.Due + ", before the sweep of " + on + "."}, true
+			}
+		}
+	}
+	return fit.Warning{}, false
+}

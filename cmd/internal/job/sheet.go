@@ -189,6 +189,9 @@ func fitDevice(s *report.Sheet, d *report.Device, method string, digits lastDigi
 	if len(rs) == 0 {
 		d.Result.State, d.Result.Why = fit.Declined, "no sweep of it is stored"
 	}
+	if w, ok := overdue(s, d); ok {
+		d.Result.Warnings = append(d.Result.Warnings, w)
+	}
 	if d.Excluded {
 		d.Result.State, d.Result.Why = fit.Excluded, d.Why
 	}
