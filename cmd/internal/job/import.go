@@ -1,6 +1,7 @@
 package job
 
 import (
+	"bytes"
 	"context"
 	"crypto/sha256"
 	"encoding/hex"
@@ -10,7 +11,6 @@ import (
 	"io"
 	"maps"
 	"os"
-	"path/filepath"
 	"slices"
 	"strings"
 	"time"
@@ -237,8 +237,8 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	if err != nil {
 		return out, err
 	}
-	if data != nil { // stdin: read once, as it cannot be read again
-		defer func() { im.rq.Stdin = nil }()
+	if name == "-" { // it cannot be read again
+		im.rq.Stdin = nil
 	}
 	if prior, ok, err := im.seenBefore(ctx, name, data); err != nil {
 		return out, err
@@ -250,7 +250,7 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	opt, progress := im.options(ctx, display)
 	var f *table.File
 	if data != nil {
-		f, err = table.Read(stdinName, strings.NewReader(string(data)), opt)
+		f, err = table.Read(display, bytes.NewReader(data), opt)
 	} else {
 		f, err = table.ReadFile(name, opt)
 	}
@@ -302,44 +302,6 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	}
 	out.Fate = report.FateStored
 	return out, nil
-}
-
-// bytes reads stdin; for a file it returns nil.
-func (im *importer) bytes(ctx context.Context, name string) ([]byte, string, error) {
-	if name != "-" {
-		return nil, filepath.Base(name), nil
-	}
-	if im.rq.Stdin == nil {
-		return nil, stdinName, Usage("", "stdin can be read only once")
-	}
-	const limit = 1 << 30
-	b, err := readAll(ctx, io.LimitReader(im.rq.Stdin, limit+1))
-	if err != nil {
-		return nil, stdinName, fmt.Errorf("stdin: %w", err)
-	}
-	if len(b) > limit {
-		return nil, stdinName, failed("split it", "stdin: more than 1 GiB")
-	}
-	if b == nil {
-		b = []byte{}
-	}
-	return b, stdinName, nil
-}
-
-// readAll is io.ReadAll that gives up when the job is interrupted: nobody can
-// wake a read of a terminal or a pipe.
-func readAll(ctx context.Context, r io.Reader) (b []byte, err error) {
-	done := make(chan struct{})
-	go func() {
-		defer close(done)
-		b, err = io.ReadAll(r)
-	}()
-	select {
-	case <-ctx.Done():
-		return nil, ctx.Err()
-	case <-done:
-		return b, err
-	}
 }
 
 // seenBefore looks for the same bytes among the lot's sources.

@@ -128,10 +128,10 @@ func sortOptions(env *Env, s *report.Sheet, rq SortRequest) (lot.SortOptions, er
 	if rq.Width != "" {
 		w, err := record.ParseNumber(rq.Width, unit)
 		if err != nil {
-			return opt, Usage("--width 50mV", "--width: %w", err)
+			return opt, Usage("--width 50m"+unit, "--width: %w", err)
 		}
 		if w <= 0 {
-			return opt, Usage("--width 50mV", "--width: %s, must be above 0", rq.Width)
+			return opt, Usage("--width 50m"+unit, "--width: %s, must be above 0", rq.Width)
 		}
 		if unit == "V" && w >= 5 {
 			env.warn("bins of %s V: a bare number is in volts, 50 mV is written 50mV", report.Clean(rq.Width))
