@@ -212,7 +212,9 @@ func (w *work) rootLine(use []int) (line, bool) {
 		if to-from < leastOnLine {
 			continue
 		}
-		e := w.scatterNear((from + to) / 2)
+		// Of few points the scatter at one place is small by chance now and then:
+		// the greatest of three places counts.
+		e := max(w.scatterNear(from), w.scatterNear((from+to)/2), w.scatterNear(to-1))
 		for to-from > leastOnLine && w.kneeAtStart(from, to, e) {
 			from++
 		}
