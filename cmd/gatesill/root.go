@@ -99,11 +99,11 @@ func fillEnv(env *job.Env, cmd *cobra.Command, color string) error {
 	env.Progress = errTTY
 	switch color {
 	case "always":
-		env.Color, env.ErrColor = true, true
+		env.Color = true
 	case "never":
 	case "auto":
 		plain := os.Getenv("NO_COLOR") != "" || os.Getenv("TERM") == "dumb"
-		env.Color, env.ErrColor = outTTY && !plain, errTTY && !plain
+		env.Color = outTTY && !plain
 	default:
 		return job.Usage("--color auto, --color always or --color never", "--color %s: no such choice", color)
 	}

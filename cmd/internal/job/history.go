@@ -41,7 +41,7 @@ func history(ctx context.Context, db *store.DB, s *report.Sheet, method string) 
 				continue
 			}
 			other.TestCurrent, other.IdleCurrent = s.TestCurrent, s.IdleCurrent
-			if err := fitSheet(ctx, &other, method); err != nil {
+			if err := fitSheet(ctx, &other, method, lastDigitsOf(&other)); err != nil {
 				return err
 			}
 			other.SortedBy = s.SortedBy

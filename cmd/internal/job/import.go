@@ -84,7 +84,7 @@ func Import(ctx context.Context, env *Env, rq ImportRequest) error {
 			if err != nil {
 				code = ExitFailed
 				f.Fate, f.Reason = report.FateRefused, reason(err)
-				tellError(env, err)
+				WriteError(env.Err, err)
 			}
 			doc.Files[i] = f
 		}
@@ -138,6 +138,8 @@ type importer struct {
 	same    string            // how the file before was read
 	sameAs  string            // its name
 	answers map[string]string // to questions of the reader, by their text
+
+	have map[string]record.Device // the lot's devices by name; nil: not read yet
 
 	settled map[string]map[string]string // columns found by behaviour, by the header's signature
 }
@@ -439,9 +441,6 @@ func mustJSON(v any) string {
 
 // reason is an error in one line, without its hint.
 func reason(err error) string { return strings.ReplaceAll(err.Error(), "\n", "; ") }
-
-// tellError writes an error and its hint to stderr.
-func tellError(env *Env, err error) { WriteError(env.Err, err) }
 
 // WriteError writes an error with its place, and the hint that goes with it.
 func WriteError(w io.Writer, err error) {

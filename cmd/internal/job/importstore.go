@@ -3,6 +3,7 @@ package job
 import (
 	"context"
 	"errors"
+	"maps"
 	"strings"
 
 	"gatesill/acquire/table"
@@ -21,6 +22,7 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		im.db, im.made = db, true
 	}
 	next := im.next
+	var added map[string]record.Device
 	err := im.db.Update(ctx, func(tx *store.Tx) error {
 		lot, err := im.lot(tx)
 		if err != nil {
@@ -33,8 +35,7 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		if err := tx.AddSource(&src); err != nil {
 			return err
 		}
-		devices, err := im.devices(tx, lot, sweeps)
-		if err != nil {
+		if added, err = im.devices(tx, lot, sweeps); err != nil {
 			return err
 		}
 		sessions, err := im.sessions(tx, lot, sweeps)
@@ -45,7 +46,11 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		for i := range sweeps {
 			next++
 			r := sweeps[i].Sweep
-			r.LotID, r.DeviceID, r.SessionID, r.SourceID, r.Position = lot.ID, devices[sweeps[i].Device].ID, sessions[i], src.ID, next
+			device, ok := added[sweeps[i].Device]
+			if !ok {
+				device = im.have[sweeps[i].Device]
+			}
+			r.LotID, r.DeviceID, r.SessionID, r.SourceID, r.Position = lot.ID, device.ID, sessions[i], src.ID, next
 			if im.bench != nil {
 				r.Instruments = im.bench.Meters
 			}
@@ -63,6 +68,7 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		return storeFailure(err)
 	}
 	im.next, im.stored = next, true
+	maps.Copy(im.have, added) // only now: a transaction that failed has added none
 	for i := range sweeps {
 		im.seen[sweeps[i].DataHash] = sweeps[i].Device
 	}
@@ -73,13 +79,20 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 // reading a file again corrects what was said wrongly the first time. The rows
 // stay, and the audit trail says why.
 func (im *importer) setAside(tx *store.Tx, lot record.Lot, f *table.File) error {
+	if _, err := tx.SourceByHash(lot.ID, f.Hash); errors.Is(err, store.ErrNotFound) {
+		return nil // nearly always: nothing else of the lot has to be read
+	} else if err != nil {
+		return err
+	}
 	sources, err := tx.Sources(lot.ID)
 	if err != nil {
 		return err
 	}
 	same := map[string]bool{}
 	for _, s := range sources {
-		same[s.ID] = s.Hash == f.Hash
+		if s.Hash == f.Hash {
+			same[s.ID] = true
+		}
 	}
 	sweeps, err := tx.Sweeps(lot.ID, false)
 	if err != nil {
@@ -120,36 +133,40 @@ func (im *importer) lot(tx *store.Tx) (record.Lot, error) {
 	return lot, nil
 }
 
-// devices gives the lot's devices by name, with the new ones of the file added.
+// devices adds the file's new devices to the lot and gives them by name. What
+// the lot has already is read once for all files of the import.
 func (im *importer) devices(tx *store.Tx, lot record.Lot, sweeps []table.Sweep) (map[string]record.Device, error) {
-	have, err := tx.Devices(lot.ID)
-	if err != nil {
-		return nil, err
+	if im.have == nil {
+		have, err := tx.Devices(lot.ID)
+		if err != nil {
+			return nil, err
+		}
+		im.have = make(map[string]record.Device, len(have))
+		for _, d := range have {
+			im.have[d.Name] = d
+		}
 	}
-	byName := make(map[string]record.Device, len(have)+len(sweeps))
-	for _, d := range have {
-		byName[d.Name] = d
-	}
+	seen := map[string]bool{}
 	var fresh []record.Device
 	for i := range sweeps {
 		s := &sweeps[i]
-		if _, ok := byName[s.Device]; ok {
+		if _, ok := im.have[s.Device]; ok || seen[s.Device] {
 			continue
 		}
-		d := record.Device{
+		seen[s.Device] = true
+		fresh = append(fresh, record.Device{
 			LotID: lot.ID, Name: s.Device, Package: s.Package, Side: s.Side, DateCode: s.DateCode, Marking: s.Marking, Tube: s.Tube,
 			Role: record.Sample, Note: s.Note, CreatedAt: record.Now(),
-		}
-		fresh = append(fresh, d)
-		byName[s.Device] = d
+		})
 	}
 	if err := tx.AddDevices(lot.ID, fresh); err != nil {
 		return nil, invalid(err)
 	}
+	added := make(map[string]record.Device, len(fresh))
 	for _, d := range fresh {
-		byName[d.Name] = d
+		added[d.Name] = d
 	}
-	return byName, nil
+	return added, nil
 }
 
 // sessions gives the session of every sweep: one for each operator, fixture and

@@ -28,7 +28,7 @@ type Env struct {
 	Err   io.Writer // talk
 	Width int       // columns of the terminal on Out, 0: none
 
-	JSON, Color, ErrColor, Quiet, Verbose, Yes bool
+	JSON, Color, Quiet, Verbose, Yes bool
 
 	Ask      func(table.Question) (string, error) // nil: stdin is no terminal
 	Progress bool                                 // Err is a terminal

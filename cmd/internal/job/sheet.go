@@ -62,7 +62,8 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	placeSweeps(&s, sweeps)
 	currents(&s, o.At)
 	start := time.Now()
-	if err := fitSheet(ctx, &s, o.Method); err != nil {
+	digits := lastDigitsOf(&s)
+	if err := fitSheet(ctx, &s, o.Method, digits); err != nil {
 		return s, err
 	}
 	e.detail("%s of %s fitted in %v", count(len(sweeps), "sweep"), count(len(s.Devices), "device"), time.Since(start).Round(time.Millisecond))
@@ -74,7 +75,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	judge(&s, o.Limit, known)
 	s.Hash = dataHash(&s)
 	if !o.ReadOnly {
-		err := db.Update(ctx, func(tx *store.Tx) error { return tx.PutEstimates(estimates(&s, o.Method)) })
+		err := db.Update(ctx, func(tx *store.Tx) error { return tx.PutEstimates(estimates(&s, o.Method, digits)) })
 		if errors.Is(err, store.ErrReadOnly) || errors.Is(err, store.ErrBusy) || errors.Is(err, store.ErrFull) {
 			e.warn("estimates not kept: %v", err)
 		} else if err != nil {
@@ -145,8 +146,7 @@ func placeSweeps(s *report.Sheet, sweeps []record.Sweep) {
 }
 
 // fitSheet fits every sweep, on all cores.
-func fitSheet(ctx context.Context, s *report.Sheet, method string) error {
-	digits := lastDigitsOf(s)
+func fitSheet(ctx context.Context, s *report.Sheet, method string, digits lastDigits) error {
 	var wg sync.WaitGroup
 	workers := runtime.GOMAXPROCS(0)
 	for w := range workers {
@@ -234,17 +234,26 @@ func lotDevices(s *report.Sheet) []lot.Device {
 }
 
 // settings writes all that a result depends on besides the data.
-func settings(s *report.Sheet, sw *report.Sweep, method string) string {
+func settings(s *report.Sheet, sw *report.Sweep, method string, digits lastDigits) string {
+	last := map[record.Quantity]float64{}
+	for _, c := range sw.Columns {
+		if step := digits[digitKey{sw.SourceID, c.Quantity}]; step > 0 {
+			last[c.Quantity] = step
+		}
+	}
 	b, err := json.Marshal(struct {
-		Method    string              `json:"method"`
-		Test      record.Num          `json:"test_current_a"`
-		Idle      record.Num          `json:"idle_current_a"`
-		Channel   record.Channel      `json:"channel"`
-		Mode      record.Mode         `json:"mode"`
-		Off       record.Num          `json:"off_v"`
-		Condition record.Condition    `json:"condition"`
-		Meters    []record.Instrument `json:"instruments"`
-	}{method, record.Known(s.TestCurrent), record.Known(s.IdleCurrent), s.Part.Channel, s.Part.Mode, s.Part.OffVoltage, sw.Condition, sw.Instruments})
+		Method    string                      `json:"method"`
+		Test      record.Num                  `json:"test_current_a"`
+		Idle      record.Num                  `json:"idle_current_a"`
+		Channel   record.Channel              `json:"channel"`
+		Mode      record.Mode                 `json:"mode"`
+		Off       record.Num                  `json:"off_v"`
+		VgsthMax  record.Num                  `json:"vgsth_max_v"`
+		MaxID     record.Num                  `json:"max_id_a"`
+		Digits    map[record.Quantity]float64 `json:"last_digits"`
+		Condition record.Condition            `json:"condition"`
+		Meters    []record.Instrument         `json:"instruments"`
+	}{method, record.Known(s.TestCurrent), record.Known(s.IdleCurrent), s.Part.Channel, s.Part.Mode, s.Part.OffVoltage, s.Part.VgsthMax, s.Part.MaxID, last, sw.Condition, sw.Instruments})
 	if err != nil { // only numbers and texts in it
 		panic(fmt.Sprintf("settings of a fit: %v", err))
 	}
@@ -252,7 +261,7 @@ func settings(s *report.Sheet, sw *report.Sweep, method string) string {
 }
 
 // estimates maps every result of the sheet to the rows that are kept.
-func estimates(s *report.Sheet, method string) []record.Estimate {
+func estimates(s *report.Sheet, method string, digits lastDigits) []record.Estimate {
 	now := record.Now()
 	var out []record.Estimate
 	for i := range s.Devices {
@@ -262,7 +271,7 @@ func estimates(s *report.Sheet, method string) []record.Estimate {
 				continue
 			}
 			est := record.Estimate{
-				SweepID: sw.ID, DataHash: sw.DataHash, Method: sw.Result.Method, Settings: settings(s, sw, method),
+				SweepID: sw.ID, DataHash: sw.DataHash, Method: sw.Result.Method, Settings: settings(s, sw, method, digits),
 				Version: s.Version, State: string(sw.Result.State), Values: map[string]record.Value{}, MadeAt: now,
 			}
 			for _, k := range fit.Keys {
