@@ -116,7 +116,7 @@ func (p *estimateParser) object(member func(key []byte)) {
 			return
 		}
 		key := p.text[p.i : p.i+n]
-		p.other = p.other || bytes.IndexByte(key, '\\') >= 0 || !utf8.Valid(key)
+		p.other = p.other || bytes.ContainsFunc(key, isEscaped) || !utf8.Valid(key)
 		p.i += n + 1
 		p.expect(':')
 		member(key)
@@ -126,6 +126,10 @@ func (p *estimateParser) object(member func(key []byte)) {
 	}
 	p.expect('}')
 }
+
+// isEscaped says whether JSON lets the character stand in a text only behind a
+// backslash, or is the backslash (RFC 8259, section 7).
+func isEscaped(r rune) bool { return r < ' ' || r == '\\' }
 
 // next takes the byte c if it comes next.
 func (p *estimateParser) next(c byte) bool {

@@ -32,7 +32,7 @@ func TestEstimatesAsJSON(t *testing.T) {
 // FuzzParseEstimates holds the direct reader against encoding/json.
 func FuzzParseEstimates(f *testing.F) {
 	for _, s := range []string{`{}`, `{"a":{}}`, `{"a":{"value":1,"u":null,"n":3},"b":{"u_between":-1.5e-3,"u_absolute":2}}`, `{"a":{"n":1.5}}`,
-		`{"a":{"n":null}}`, `{"a":{"VALUE":1}}`, `{"a":{"value":1},"a":{"u":2}}`, `{"a\n":{}}`, `{ "a":{}}`, `{"a":null}`, `{"a":{"x":1}}`, `{},`} {
+		`{"a":{"n":null}}`, `{"a":{"VALUE":1}}`, `{"a":{"value":1},"a":{"u":2}}`, `{"a\n":{}}`, "{\"\x10\":{}}", `{ "a":{}}`, `{"a":null}`, `{"a":{"x":1}}`, `{},`} {
 		f.Add(s)
 	}
 	f.Fuzz(func(t *testing.T, text string) {
