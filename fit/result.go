@@ -93,8 +93,22 @@ type Result struct {
 	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
 	GmRising  bool                 // GmMax lies at the end of the sweep: a longer one would give more
 	Crossings int                  // upward crossings of the test current
+	Levels    []Level              // the curve itself: gate voltages at the currents of [LevelCurrents] inside the sweep, ascending by current
 	LeftOut   []LeftOut            // ascending by Index
 	Warnings  []Warning
+}
+
+// Level is the gate voltage at which a device carries one current.
+type Level struct {
+	I  float64 // A, magnitude, one of [LevelCurrents]
+	Vg float64 // V, with the device's own sign
+	U  float64 // V, standard uncertainty within the session; NaN: not known
+}
+
+// LevelCurrents are the currents, A, at which curves of different devices and
+// lots are compared: 1, 2 and 5 in every decade from 100 µA to 100 A.
+var LevelCurrents = []float64{
+	1e-4, 2e-4, 5e-4, 1e-3, 2e-3, 5e-3, 1e-2, 2e-2, 5e-2, 0.1, 0.2, 0.5, 1, 2, 5, 10, 20, 50, 100,
 }
 
 // Threshold is one extrapolated threshold with the gain factor from the same line.
