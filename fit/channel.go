@@ -11,6 +11,7 @@ const (
 	parTheta         // 1/V
 	parLambda        // 1/V
 	parKink          // share of the kinked foot, 0 to 1
+	parTop           // V, by which the supply is higher than stated
 	parCount
 )
 
@@ -32,55 +33,37 @@ func channelOf(p *[parCount]float64) channel {
 // nothing) to the last bit.
 const far = 37
 
-// knee is the overdrive that the channel feels at x = V_GS - V_T, V: x itself well
-// above the threshold, exponential with rate 1/a well below. It mixes the smooth
-// foot of Enz, Krummenacher and Vittoz (kink 0) with one that goes over into the
-// straight line at x = a/2 (kink 1). g is its slope, da and dk its derivatives by a
-// and by the kink.
-func (c *channel) knee(x float64) (s, g, da, dk float64) {
+// smooth is the smooth knee a ln(1 + exp(x/a)), its slope, and its derivative by a.
+func (c *channel) smooth(x float64) (s, g, da float64) {
 	z := x * c.inverse
-	if z > far {
-		return x, 1, 0, 0
+	switch {
+	case z > far:
+		return x, 1, 0
+	case z < -far:
+		return 0, 0, 0
+	case z >= 0:
+		e := math.Exp(-z)
+		s, g = x+c.a*logOnePlus(e), 1/(1+e)
+	default:
+		e := math.Exp(z)
+		s, g = c.a*logOnePlus(e), e/(1+e)
 	}
-	if z < -far {
-		return 0, 0, 0, 0
-	}
-	e := math.Exp(-math.Abs(z))
-	l := logOnePlus(e)
-	var foot, footSlope, footA float64
-	if z >= 0 {
-		s, g = x+c.a*l, 1/(1+e)
-		foot, footSlope = x, 1
-	} else {
-		s, g = c.a*l, e/(1+e)
-	}
-	da = (s - x*g) * c.inverse
-	if c.kink == 0 {
-		return s, g, da, c.footOf(x, z, e) - s
-	}
-	if z < 0.5 {
-		foot = c.footOf(x, z, e)
-		footSlope = foot * c.inverse
-		footA = footSlope * (1 - z)
-	}
-	dk = foot - s
-	s += c.kink * dk
-	g += c.kink * (footSlope - g)
-	da += c.kink * (footA - da)
-	return s, g, da, dk
+	return s, g, (s - x*g) * c.inverse
 }
 
-// footOf is the kinked foot at x = z a, with e = exp(-|z|): the exponential
-// (a/2) exp(z - 1/2) below z = 1/2, the straight line above.
-func (c *channel) footOf(x, z, e float64) float64 {
-	const half = 0.5 * 0.60653065971263342360 // exp(-1/2)/2
-	switch {
-	case z >= 0.5:
-		return x
-	case z >= 0:
-		return c.a * half / e
+// kinked is the knee that is exponential, (a/2) exp(x/a - 1/2), up to x = a/2 and
+// then x itself, its slope, and its derivative by a.
+func (c *channel) kinked(x float64) (s, g, da float64) {
+	z := x * c.inverse
+	if z >= 0.5 {
+		return x, 1, 0
 	}
-	return c.a * half * e
+	if z < -far {
+		return 0, 0, 0
+	}
+	s = c.a / 2 * math.Exp(z-0.5)
+	g = s * c.inverse
+	return s, g, g * (1 - z)
 }
 
 // logOnePlus is ln(1+e) for 0 <= e <= 1; by its series where e is small.
@@ -91,41 +74,73 @@ func logOnePlus(e float64) float64 {
 	return e * (1 - e*(0.5-e*(1.0/3-e*(0.25-e*0.2))))
 }
 
+// ends is what the channel feels at its source and its drain end, V: the current
+// goes with the difference of their squares.
+type ends struct {
+	s, sx, sa, sk     float64 // source end; its derivatives by V_GS, a and the kink
+	d, dx, dv, da, dk float64 // drain end; the same, and by -V_DS
+}
+
+// ends evaluates both at x = V_GS - V_T. Of the kinked share the drain end is what
+// a square law leaves: the source end less V_DS, or nothing.
+func (c *channel) ends(x, vds float64) (e ends) {
+	e.s, e.sx, e.sa = c.smooth(x)
+	e.d, e.dx, e.da = c.smooth(x - vds)
+	e.dv = e.dx
+	f, fx, fa := c.kinked(x)
+	e.sk, e.dk = f-e.s, -e.d
+	pinched := f <= vds
+	if !pinched {
+		e.dk += f - vds
+	}
+	if k := c.kink; k > 0 {
+		e.s += k * e.sk
+		e.sx += k * (fx - e.sx)
+		e.sa += k * (fa - e.sa)
+		e.d += k * e.dk
+		e.dx *= 1 - k
+		e.dv *= 1 - k
+		e.da *= 1 - k
+		if !pinched {
+			e.dx += k * fx
+			e.dv += k
+			e.da += k * fa
+		}
+	}
+	return e
+}
+
 // current is I_D [A] at V_GS and V_DS [V], and its derivatives by both, S.
 func (c *channel) current(vgs, vds float64) (i, gm, gds float64) {
-	x := vgs - c.vt
-	s1, g1, _, _ := c.knee(x)
-	s2, g2, _, _ := c.knee(x - vds)
-	d := 1 / (1 + c.theta*s1)
+	e := c.ends(vgs-c.vt, vds)
+	d := 1 / (1 + c.theta*e.s)
 	l := 1 + c.lambda*vds
-	q := s1*s1 - s2*s2
+	q := e.s*e.s - e.d*e.d
 	k := c.half * d
 	i = k * q * l
-	gm = k * l * (2*(s1*g1-s2*g2) - q*c.theta*g1*d)
-	gds = k * (2*s2*g2*l + c.lambda*q)
+	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - q*c.theta*e.sx*d)
+	gds = k * (2*e.d*e.dv*l + c.lambda*q)
 	return i, gm, gds
 }
 
 // partials adds to current the derivatives of I_D by every parameter, at fixed
 // V_GS and V_DS.
 func (c *channel) partials(vgs, vds float64, dp *[parCount]float64) (i, gm, gds float64) {
-	x := vgs - c.vt
-	s1, g1, a1, k1 := c.knee(x)
-	s2, g2, a2, k2 := c.knee(x - vds)
-	d := 1 / (1 + c.theta*s1)
+	e := c.ends(vgs-c.vt, vds)
+	d := 1 / (1 + c.theta*e.s)
 	l := 1 + c.lambda*vds
-	q := s1*s1 - s2*s2
+	q := e.s*e.s - e.d*e.d
 	k := c.half * d
 	i = k * q * l
-	by := func(d1, d2 float64) float64 { return k * l * (2*(s1*d1-s2*d2) - q*c.theta*d1*d) }
-	gm = by(g1, g2)
-	gds = k * (2*s2*g2*l + c.lambda*q)
+	bend := q * c.theta * d
+	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - bend*e.sx)
+	gds = k * (2*e.d*e.dv*l + c.lambda*q)
 	dp[parVt] = -gm
 	dp[parBeta] = i
-	dp[parN] = by(a1, a2) * c.a
-	dp[parTheta] = -i * s1 * d
+	dp[parN] = k * l * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
+	dp[parTheta] = -i * e.s * d
 	dp[parLambda] = k * q * vds
-	dp[parKink] = by(k1, k2)
+	dp[parKink] = k * l * (2*(e.s*e.sk-e.d*e.dk) - bend*e.sk)
 	return i, gm, gds
 }
 
@@ -144,7 +159,8 @@ type feed struct {
 //
 // The right side falls as I rises, so there is one root, between 0 and the
 // smaller of vtop over the resistance and the current without it. Newton's rule
-// from start (any number), halving where a step leaves the bracket, to a relative
+// from start (any number), halving where a step leaves the bracket or is not half of the one before (the
+// kink has a corner), to a relative
 // 1e-11 (the last step is below 1e-6, and the rule doubles the digits).
 func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
 	r := f.source + f.drain
@@ -158,6 +174,7 @@ func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
 		i, _, _ = c.current(vg, vtop)
 		i = math.Min(i, hi)
 	}
+	before := math.Inf(1) // the step before
 	for range 80 {
 		id, gm, gds := c.current(vg-i*f.source, vtop-i*r)
 		if miss := i - id; miss > 0 {
@@ -166,15 +183,18 @@ func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
 			lo = i
 		}
 		next := i - (i-id)/(1+f.source*gm+r*gds)
-		if !(next >= lo && next <= hi) {
+		if !(next >= lo && next <= hi) || math.Abs(next-i) > before/2 && hi-lo < math.Inf(1) {
 			next = lo + (hi-lo)/2
+			if hi-lo <= 1e-11*hi {
+				return next
+			}
 		} else if math.Abs(next-i) <= 1e-6*next {
 			return next
 		}
 		if next == i {
 			return i
 		}
-		i = next
+		i, before = next, math.Abs(next-i)
 	}
 	return i
 }
@@ -189,6 +209,7 @@ func (c *channel) along(f feed, vg, vtop, start float64, dp *[parCount]float64) 
 	if f.tied {
 		slope += gds
 	}
+	dp[parTop] = gds
 	if r == 0 {
 		return i, slope
 	}

@@ -119,7 +119,7 @@ func (w *work) gateAt(iref float64) crossing {
 	if c.count > 1 && c.hi-c.lo < 6*e {
 		c.b = (c.b + last + 1) / 2 // noise, not hysteresis: between them
 	}
-	if !w.interpolate(&c, iref, e) {
+	if !w.readAlong(&c, iref) && !w.interpolate(&c, iref, e) {
 		w.bounds(&c, iref, e)
 	}
 	w.judgeGrid(&c, iref)

@@ -50,5 +50,5 @@ func (m Model) Solve(vg, vtop, rl float64) float64 {
 }
 
 func (m Model) channel() channel {
-	return channelOf(&[parCount]float64{m.Vt, math.Log(m.Beta), math.Log(m.N), m.Theta, m.Lambda, m.Kink})
+	return channelOf(&[parCount]float64{m.Vt, math.Log(m.Beta), math.Log(m.N), m.Theta, m.Lambda, m.Kink, 0})
 }

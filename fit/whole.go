@@ -1,0 +1,268 @@
+package fit
+
+import (
+	"math"
+	"slices"
+
+	"gatesill/fit/lsq"
+)
+
+// whole is the transfer model laid through a whole curve.
+type whole struct {
+	transfer
+	from      []int   // index of each point in work.pts
+	resistive bool    // the channel is a resistor at most points
+	noise     float64 // V, scatter of points about the curve, beyond what is stated of them
+	misfit    float64 // reduced χ², floors included
+	got       lsq.Fit
+}
+
+// The floors of the weights: what the model itself is wrong by.
+const (
+	modelShare = 0.005 // of the current
+	modelOfTop = 0.001 // of the greatest current
+)
+
+// usualNoise is the scatter of a handheld's gate reading, V (common practice, no
+// source).
+const usualNoise = 0.4e-3
+
+// wholeOptions stop a fit when a further step would not move the threshold by
+// 10 nV.
+var wholeOptions = lsq.Options{MaxEvals: 200}
+
+// whole is the model laid through the curve, nil where there is none to be had.
+func (w *work) whole() *whole {
+	if !w.laid {
+		w.laid = true
+		if t, ok := w.layWhole(); ok {
+			w.model = t
+		}
+	}
+	return w.model
+}
+
+// layWhole lays the model through the curve; false where the points do not
+// allow it.
+func (w *work) layWhole() (*whole, bool) {
+	t := &whole{}
+	if !t.choose(w) {
+		return nil, false
+	}
+	if !t.start(t.resistive) {
+		return nil, false
+	}
+	t.free = []int{parVt, parBeta, parN, parTheta}
+	if w.s.Circuit == Load && t.f.drain > 0 {
+		t.free = append(t.free, parLambda)
+		t.mean[parLambda], t.sd[parLambda] = 0.01, 0.03
+	}
+	strong := 0
+	for _, i := range t.i {
+		if i > 0.01*slices.Max(t.i) {
+			strong++
+		}
+	}
+	if strong <= len(t.free) {
+		return nil, false
+	}
+	for j := range t.slope {
+		t.slope[j] = secant(t.vg, t.i, j)
+		t.solved[j] = t.i[j]
+	}
+	t.noise = usualNoise
+	for range 2 {
+		t.weigh(w)
+		t.got = t.fit(wholeOptions)
+		if !t.got.Reason.Converged() {
+			return nil, false
+		}
+		t.noise = t.scatter(w)
+	}
+	t.misfit = t.got.Scale()
+	return t, true
+}
+
+// choose takes the points that the model can describe: those with a current and a
+// known circuit; in the load circuit those with less than half of the supply
+// across the resistor, for the model's channel is not a good resistor.
+func (t *whole) choose(w *work) bool {
+	t.size(len(w.pts))
+	n := 0
+	small := 0
+	for j := range w.pts {
+		p := &w.pts[j]
+		top, ok := w.top(p)
+		if !ok {
+			continue
+		}
+		t.vg[n], t.vtop[n], t.i[n] = p.vg, top, p.i
+		t.from = append(t.from, j)
+		n++
+	}
+	t.size(n)
+	if n == 0 {
+		return false
+	}
+	t.f = w.feed()
+	t.resistive = w.resistive()
+	_ = small
+	return true
+}
+
+// feed is the circuit as far as it is known.
+func (w *work) feed() (f feed) {
+	burden := w.s.Burden
+	if !positive(burden) {
+		burden = 0
+	}
+	switch w.s.Circuit {
+	case Diode:
+		f.tied = true
+	case Fixed:
+		if len(w.c.Vd) == 0 {
+			f.drain = burden
+		}
+	case Load:
+		if positive(w.s.RL) && finiteNumber(w.vdd) {
+			f.drain = w.s.RL + burden
+		}
+	}
+	return f
+}
+
+// manyVolts stands for a drain voltage that is not known but well above the
+// overdrive.
+const manyVolts = 1000
+
+// top is the voltage above the circuit's drain resistance at point p; false for a
+// point that the model is not meant for.
+func (w *work) top(p *point) (float64, bool) {
+	switch w.s.Circuit {
+	case Diode:
+		if v := w.drainAt(p.k); finiteNumber(v) {
+			return v, true
+		}
+		return p.vg, true
+	case Fixed:
+		if len(w.c.Vd) > 0 {
+			v := w.drainAt(p.k)
+			return v, finiteNumber(v)
+		}
+		return w.s.Vds, positive(w.s.Vds)
+	case Load:
+		v := w.supplyAt(p.k)
+		if !positive(w.s.RL) {
+			return manyVolts, true
+		}
+		if !finiteNumber(v) {
+			return manyVolts, p.i*w.s.RL < 0.5*w.least
+		}
+		return v, p.i*w.s.RL < 0.5*v
+	}
+	return manyVolts, true
+}
+
+// resistive reports whether the channel is a resistor at most points.
+func (w *work) resistive() bool { return w.s.Circuit == Fixed && w.fixedVds() < linearVds }
+
+// start finds the parameters to start from: a straight line through the root of
+// the current, or through the current itself where the channel is a resistor; the
+// steepest step where the load resistor leaves too few points for a line.
+func (t *transfer) start(resistive bool) bool {
+	top := 0.0
+	free := func(j int) bool { return t.f.drain == 0 || resistive || t.i[j]*t.f.drain < 0.5*t.vtop[j] }
+	for j := range t.i {
+		if free(j) {
+			top = math.Max(top, t.i[j])
+		}
+	}
+	lo := 0.02
+	if resistive {
+		lo = 0.2
+	}
+	root := func(i float64) float64 {
+		if resistive {
+			return i
+		}
+		return math.Sqrt(math.Max(0, i))
+	}
+	var n, sx, sy, sxx, sxy float64
+	for j, i := range t.i {
+		if i < lo*top || !free(j) {
+			continue
+		}
+		y := root(i)
+		n++
+		sx += t.vg[j]
+		sy += y
+		sxx += t.vg[j] * t.vg[j]
+		sxy += t.vg[j] * y
+	}
+	b := (n*sxy - sx*sy) / (n*sxx - sx*sx)
+	vt := (sx - sy/b) / n
+	if n < 3 || !(b > 0) {
+		b = 0
+		for j := 1; j < len(t.i); j++ {
+			if s := (root(t.i[j]) - root(t.i[j-1])) / (t.vg[j] - t.vg[j-1]); s > b {
+				b, vt = s, t.vg[j]-root(t.i[j])/s
+			}
+		}
+	}
+	if !(b > 0) || math.IsNaN(vt) {
+		return false
+	}
+	t.p = [parCount]float64{parVt: vt, parBeta: math.Log(2 * b * b), parN: math.Log(1.5)}
+	if resistive {
+		v := t.vtop[len(t.vtop)-1]
+		t.p[parVt] -= v / 2
+		t.p[parBeta] = math.Log(b / v)
+	}
+	return true
+}
+
+// weigh sets sigma from what is known of the points, the scatter seen, and the
+// floors.
+func (t *whole) weigh(w *work) {
+	top := slices.Max(t.i)
+	for j := range t.sigma {
+		p := &w.pts[t.from[j]]
+		random := rss(p.u, t.slope[j]*rss(t.noise, p.ux))
+		t.sigma[j] = rss(random, rss(modelShare*t.solved[j], modelOfTop*top))
+	}
+}
+
+// scatter is the standard deviation of the points about the curve, in volts at the
+// gate, beyond what is stated of them: of those that carry a hundredth of the
+// greatest current or more.
+func (t *whole) scatter(w *work) float64 {
+	top := slices.Max(t.i)
+	var sum, known float64
+	n := 0
+	for j, i := range t.i {
+		if i < 0.01*top {
+			continue
+		}
+		p := &w.pts[t.from[j]]
+		r := (t.solved[j] - i) / t.slope[j]
+		sum += r * r
+		k := rss(p.ux, p.u/t.slope[j])
+		known += k * k
+		n++
+	}
+	if n == 0 {
+		return t.noise
+	}
+	// Of few points the scatter says little: two more of a usual one are added.
+	free := float64(max(0, n-len(t.free)))
+	return math.Sqrt(math.Max(0, (sum+2*usualNoise*usualNoise)/(free+2)-known/float64(n)))
+}
+
+// secant is the slope of the curve at point j by its neighbours.
+func secant(x, y []float64, j int) float64 {
+	a, b := max(0, j-1), min(len(x)-1, j+1)
+	if !(x[b] > x[a]) {
+		return 0
+	}
+	return math.Max(0, (y[b]-y[a])/(x[b]-x[a]))
+}
