@@ -111,9 +111,9 @@ func (d *denseCurve) span() (from, to float64) {
 // wherever a meter would show the current: the hand-turned files hold points of
 // the same simulation at other gate voltages. Above 0.5 A, past every current
 // that is asked for, where a load line comes to its end and the slope with it, it
-// is the current that lies within a third of the finest meters' noise.
+// is the current that lies within half of the finest meters' noise.
 func TestDenseInterpolation(t *testing.T) {
-	const least, limit, strong, share = 1e-6, 0.05e-3, 0.5, 1e-4
+	const least, limit, strong, share = 1e-6, 0.05e-3, 0.5, 1.5e-4
 	dense := map[string]*denseCurve{}
 	for _, d := range denseCurves(t) {
 		dense[strings.TrimSuffix(d.file, "_dense.csv")] = d
