@@ -26,14 +26,14 @@ import (
 // testCell is one cell.
 type testCell struct {
 	family  string  // level of the simulator's model, with "held" when held back
-	circuit string  // "load", "load1k", "diode", "fixed10", "fixed28", "fixed0v1"
+	circuit string  // "load", "load1k", "diode", "fixed 10 V", "fixed 28 V", "fixed 100 mV"
 	counts  int     // of the meters: 6000, 20000
 	step    float64 // V
 	current float64 // A
 }
 
 func (c testCell) String() string {
-	return fmt.Sprintf("%-14s %-8s %5d counts %3.0f mV %6s", c.family, c.circuit, c.counts, 1e3*c.step, amps(c.current))
+	return fmt.Sprintf("%-12s %-12s %5d counts %3.0f mV %6s", c.family, c.circuit, c.counts, 1e3*c.step, amps(c.current))
 }
 
 // bar is the greatest rms error of the cell, V: 1 mV at 60 mV steps with 20,000
@@ -429,7 +429,7 @@ func logTestSet(t *testing.T, results []*cellResult, mode testMode) {
 		if worst[g] != nil {
 			w = fmt.Sprintf("worst rms %.2f mV (%s)", 1e3*worst[g].rms(), worst[g].circuit)
 		}
-		t.Logf("  %-14s %5d counts %3.0f mV %6s: %d cells, missing %v, %s", g.family, g.counts, 1e3*g.step, amps(g.amps), size[g], names[g], w)
+		t.Logf("  %-12s %5d counts %3.0f mV %6s: %d cells, missing %v, %s", g.family, g.counts, 1e3*g.step, amps(g.amps), size[g], names[g], w)
 	}
 	t.Logf("%d cells; missing a bar: %v", len(results), missed)
 }
