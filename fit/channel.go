@@ -10,7 +10,6 @@ const (
 	parN             // ln of n
 	parTheta         // 1/V
 	parLambda        // 1/V
-	parKink          // share of the kinked foot, 0 to 1
 	parTop           // V, by which the supply is higher than stated
 	parCount
 )
@@ -21,12 +20,12 @@ type channel struct {
 	vt, half      float64 // V; β/2, A/V²
 	a, inverse    float64 // 2 n kT/q and its inverse, V and 1/V
 	theta, lambda float64 // 1/V
-	kink          float64
+	foot          Foot
 }
 
-func channelOf(p *[parCount]float64) channel {
+func channelOf(p *[parCount]float64, foot Foot) channel {
 	a := 2 * math.Exp(p[parN]) * thermalVoltage
-	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], kink: p[parKink]}
+	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], foot: foot}
 }
 
 // far is the argument of the knee, in units of a, beyond which it is straight (or
@@ -48,6 +47,20 @@ func (c *channel) smooth(x float64) (s, g, da float64) {
 		e := math.Exp(z)
 		s, g = c.a*logOnePlus(e), e/(1+e)
 	}
+	return s, g, (s - x*g) * c.inverse
+}
+
+// sharp is the knee a asinh(exp(x/a)/2), its slope, and its derivative by a.
+func (c *channel) sharp(x float64) (s, g, da float64) {
+	z := x * c.inverse
+	switch {
+	case z > far:
+		return x, 1, 0
+	case z < -far:
+		return 0, 0, 0
+	}
+	e := math.Exp(z) / 2
+	s, g = c.a*math.Asinh(e), e/math.Sqrt(1+e*e)
 	return s, g, (s - x*g) * c.inverse
 }
 
@@ -77,34 +90,26 @@ func logOnePlus(e float64) float64 {
 // ends is what the channel feels at its source and its drain end, V: the current
 // goes with the difference of their squares.
 type ends struct {
-	s, sx, sa, sk     float64 // source end; its derivatives by V_GS, a and the kink
-	d, dx, dv, da, dk float64 // drain end; the same, and by -V_DS
+	s, sx, sa     float64 // source end; its derivatives by V_GS and a
+	d, dx, dv, da float64 // drain end; the same, and by -V_DS
 }
 
-// ends evaluates both at x = V_GS - V_T. Of the kinked share the drain end is what
+// ends evaluates both at x = V_GS - V_T. With the kinked foot the drain end is what
 // a square law leaves: the source end less V_DS, or nothing.
 func (c *channel) ends(x, vds float64) (e ends) {
-	e.s, e.sx, e.sa = c.smooth(x)
-	e.d, e.dx, e.da = c.smooth(x - vds)
-	e.dv = e.dx
-	f, fx, fa := c.kinked(x)
-	e.sk, e.dk = f-e.s, -e.d
-	pinched := f <= vds
-	if !pinched {
-		e.dk += f - vds
-	}
-	if k := c.kink; k > 0 {
-		e.s += k * e.sk
-		e.sx += k * (fx - e.sx)
-		e.sa += k * (fa - e.sa)
-		e.d += k * e.dk
-		e.dx *= 1 - k
-		e.dv *= 1 - k
-		e.da *= 1 - k
-		if !pinched {
-			e.dx += k * fx
-			e.dv += k
-			e.da += k * fa
+	switch c.foot {
+	case SmoothFoot:
+		e.s, e.sx, e.sa = c.smooth(x)
+		e.d, e.dx, e.da = c.smooth(x - vds)
+		e.dv = e.dx
+	case SharpFoot:
+		e.s, e.sx, e.sa = c.sharp(x)
+		e.d, e.dx, e.da = c.sharp(x - vds)
+		e.dv = e.dx
+	default:
+		e.s, e.sx, e.sa = c.kinked(x)
+		if e.s > vds {
+			e.d, e.dx, e.da, e.dv = e.s-vds, e.sx, e.sa, 1
 		}
 	}
 	return e
@@ -140,7 +145,6 @@ func (c *channel) partials(vgs, vds float64, dp *[parCount]float64) (i, gm, gds 
 	dp[parN] = k * l * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
 	dp[parTheta] = -i * e.s * d
 	dp[parLambda] = k * q * vds
-	dp[parKink] = k * l * (2*(e.s*e.sk-e.d*e.dk) - bend*e.sk)
 	return i, gm, gds
 }
 
@@ -161,7 +165,7 @@ type feed struct {
 // smaller of vtop over the resistance and the current without it. Newton's rule
 // from start (any number), halving where a step leaves the bracket or is not half of the one before (the
 // kink has a corner), to a relative
-// 1e-11 (the last step is below 1e-6, and the rule doubles the digits).
+// 1e-11 (the last step is below 1e-7, and the rule doubles the digits).
 func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
 	r := f.source + f.drain
 	if r == 0 {
@@ -188,7 +192,7 @@ func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
 			if hi-lo <= 1e-11*hi {
 				return next
 			}
-		} else if math.Abs(next-i) <= 1e-6*next {
+		} else if math.Abs(next-i) <= 1e-7*next {
 			return next
 		}
 		if next == i {

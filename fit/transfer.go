@@ -12,6 +12,7 @@ import (
 // has one more residual, (p - mean)/sd.
 type transfer struct {
 	f                  feed
+	foot               Foot
 	vg, vtop, i, sigma []float64         // V, V, A, A; one element a point
 	p                  [parCount]float64 // the last parameters evaluated, and the fixed ones
 	free               []int             // parameters that are fitted
@@ -24,11 +25,11 @@ type transfer struct {
 }
 
 // bounds of the parameters: what no transistor and no knee goes beyond.
-var parLower = [parCount]float64{math.Inf(-1), -20, -3, -0.5, -0.05, 0, -1} // n from 0.05
-var parUpper = [parCount]float64{math.Inf(1), 12, 3, 5, 0.5, 1, 1}          // n to 20
+var parLower = [parCount]float64{math.Inf(-1), -20, -3, -0.5, -0.05, -1} // n from 0.05
+var parUpper = [parCount]float64{math.Inf(1), 12, 3, 5, 0.5, 1}          // n to 20
 
 // parSteps are steps of the parameters that no longer matter.
-var parSteps = [parCount]float64{1e-8, 1e-7, 1e-5, 1e-6, 1e-6, 1e-4, 1e-5}
+var parSteps = [parCount]float64{1e-8, 1e-7, 1e-5, 1e-6, 1e-6, 1e-5}
 
 // size makes room for n points.
 func (t *transfer) size(n int) {
@@ -48,7 +49,7 @@ func (t *transfer) eval(x, r, jac []float64) bool {
 	for j, k := range t.free {
 		p[k] = x[j]
 	}
-	c := channelOf(&p)
+	c := channelOf(&p, t.foot)
 	m := len(r)
 	n := len(t.vg)
 	var dp [parCount]float64

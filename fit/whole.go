@@ -27,6 +27,13 @@ const (
 // source).
 const usualNoise = 0.4e-3
 
+// leastStrong is the fewest points that carry a hundredth of the greatest current or
+// more.
+const leastStrong = 4
+
+// weakTheta holds θ only where the points say nothing of it, 1/V.
+const weakTheta = 1.0
+
 // wholeOptions stop a fit when a further step would not move the threshold by
 // 10 nV.
 var wholeOptions = lsq.Options{MaxEvals: 200}
@@ -52,19 +59,20 @@ func (w *work) layWhole() (*whole, bool) {
 	if !t.start(t.resistive) {
 		return nil, false
 	}
-	t.free = []int{parVt, parBeta, parN, parTheta}
-	if w.s.Circuit == Load && t.f.drain > 0 {
-		t.free = append(t.free, parLambda)
-		t.mean[parLambda], t.sd[parLambda] = 0.01, 0.03
-	}
 	strong := 0
 	for _, i := range t.i {
 		if i > 0.01*slices.Max(t.i) {
 			strong++
 		}
 	}
-	if strong <= len(t.free) {
+	if strong < leastStrong {
 		return nil, false
+	}
+	t.free = []int{parVt, parBeta, parN, parTheta}
+	t.mean[parTheta], t.sd[parTheta] = usualTheta, weakTheta
+	if w.s.Circuit == Load && t.f.drain > 0 && strong >= 2*leastStrong {
+		t.free = append(t.free, parLambda)
+		t.mean[parLambda], t.sd[parLambda] = 0.01, 0.03
 	}
 	for j := range t.slope {
 		t.slope[j] = secant(t.vg, t.i, j)
