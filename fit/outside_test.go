@@ -244,11 +244,11 @@ func TestOutsideThresholds(t *testing.T) {
 			}
 			continue
 		}
-		want := map[Circuit]string{Diode: "sqrt", Load: "sqrt", Fixed: "sqrt"}[s.Circuit]
+		second := "sqrt"
 		if s.Circuit == Fixed && math.Abs(s.Vds) < 1 {
-			want = "ratio"
+			second = "ratio"
 		}
-		if r.Method != want {
+		if _, ok := r.VtBy[second]; !ok || r.Method != "curve" {
 			t.Errorf("%s: method %q, codes %s", o.file, r.Method, codesOf(r))
 			continue
 		}
@@ -261,8 +261,8 @@ func TestOutsideThresholds(t *testing.T) {
 			if o.channelP {
 				e = -e
 			}
-			limit := map[string]float64{"sqrt": 11e-3, "linear": 12e-3, "ratio": 4e-3}[m]
-			if o.device == "l3r" && m != "ratio" {
+			limit := map[string]float64{"sqrt": 11e-3, "linear": 12e-3, "ratio": 4e-3, "curve": 2e-3}[m]
+			if o.device == "l3r" && m != "ratio" && m != "curve" {
 				limit *= 2
 			}
 			if math.Abs(e) > limit+3*v.Vt.U {
@@ -274,8 +274,8 @@ func TestOutsideThresholds(t *testing.T) {
 				t.Errorf("%s: %s β %.3f for %g", o.file, m, v.Beta.Value, o.beta)
 			}
 		}
-		if m := "ratio"; r.Method == m {
-			near(t, o.file+" θ + β R_S", r.Theta.Value, o.theta+o.beta*o.rs, 0.012)
+		if ratio, ok := r.VtBy["ratio"]; ok {
+			near(t, o.file+" θ + β R_S", ratio.Theta.Value, o.theta+o.beta*o.rs, 0.012)
 		}
 	}
 	for _, key := range slices.Sorted(maps.Keys(sums)) {

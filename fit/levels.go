@@ -1,0 +1,61 @@
+package fit
+
+import "math"
+
+// levelGap is the share of the gap between two points that a level between them may
+// be wrong by, beside the scatter of the points (judgement).
+const levelGap = 0.03
+
+// levels reads the whole curve at the currents of [LevelCurrents]: along the fitted
+// model where there is one, corrected by the residuals of the points on either side,
+// else straight in the root of the current. Quicker and coarser than a crossing: for
+// comparing curves, not for reading a threshold.
+func (w *work) levels() []Level {
+	n := len(w.pts)
+	if n < 2 {
+		return nil
+	}
+	t := w.whole()
+	noise := usualNoise
+	if t != nil {
+		noise = t.noise
+	}
+	var out []Level
+	b := 1
+	for _, i := range LevelCurrents {
+		for b < n && w.pts[b].i < i {
+			b++
+		}
+		if b >= n {
+			break
+		}
+		p, q := &w.pts[b-1], &w.pts[b]
+		if !p.above() || p.i > i || !(q.vg > p.vg) {
+			continue
+		}
+		v := w.levelBetween(t, p, q, i)
+		if math.IsNaN(v) {
+			continue
+		}
+		u := rss(rss(noise, q.ux), levelGap*(q.vg-p.vg))
+		out = append(out, Level{I: i, Vg: w.sign * v, U: rss(u, q.u/i*(q.vg-p.vg))})
+	}
+	return out
+}
+
+// levelBetween is the gate voltage at current i between points p and q.
+func (w *work) levelBetween(t *whole, p, q *point, i float64) float64 {
+	a, b := math.Sqrt(p.i), math.Sqrt(q.i)
+	share := (math.Sqrt(i) - a) / (b - a)
+	plain := p.vg + share*(q.vg-p.vg)
+	if t == nil {
+		return plain
+	}
+	at := func(i, guess float64) float64 { v, _ := t.gateFor(i, guess); return v }
+	lo, v, hi := at(p.i, p.vg), at(i, plain), at(q.i, q.vg)
+	if math.IsNaN(lo) || math.IsNaN(v) || math.IsNaN(hi) || !(hi > lo) {
+		return plain
+	}
+	share = (v - lo) / (hi - lo)
+	return v + (1-share)*(p.vg-lo) + share*(q.vg-hi)
+}
