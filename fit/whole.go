@@ -36,7 +36,10 @@ const (
 	// weakTheta holds θ only where the points say nothing of it, 1/V; weakLambda
 	// likewise.
 	weakTheta  = 1.0
-	weakLambda = 0.008
+	weakLambda = 0.015
+	// wellSaturated is how many times the overdrive the drain voltage must be for a
+	// point behind a load resistor that takes most of the supply to count (judgement).
+	wellSaturated = 2
 	// farOff is how many times the median residual a point may lie off the curve, and
 	// leastOff the least residual, in floors, that is called off (judgement).
 	farOff   = 7
@@ -80,8 +83,11 @@ func (w *work) whole() *whole {
 // practice. Checked: TestWholeCurve, TestOutsideThresholds, TestOneBadPoint.
 func (w *work) layWhole() (*whole, bool) {
 	t := &whole{}
-	if w.s.Circuit == NoCircuit || !t.choose(w) || !t.start(w.resistive()) {
+	if w.s.Circuit == NoCircuit || !t.choose(w, math.NaN()) || !t.start(w.resistive()) {
 		return nil, false
+	}
+	if t.f.drain > 0 && w.s.Circuit == Load {
+		t.choose(w, t.p[parVt])
 	}
 	strong := 0
 	top := slices.Max(t.i)
@@ -156,13 +162,18 @@ func (t *whole) residual(j int) float64 {
 // noWeight is the factor to sigma that takes a point out of a fit.
 const noWeight = 1e6
 
-// choose takes the points that the model can describe.
-func (t *whole) choose(w *work) bool {
+// choose takes the points that the model can describe: see top; and once the
+// threshold is known about, all whose drain voltage is well above the overdrive.
+func (t *whole) choose(w *work, vt float64) bool {
 	t.size(len(w.pts))
+	t.from = t.from[:0]
 	n := 0
 	for j := range w.pts {
 		p := &w.pts[j]
 		top, ok := w.top(p)
+		if !ok && p.vds > wellSaturated*(p.vg-vt) {
+			top, ok = w.supplyOf(p)
+		}
 		if !ok {
 			continue
 		}
