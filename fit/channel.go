@@ -22,33 +22,38 @@ type channel struct {
 	a, inverse    float64 // 2 n kT/q and its inverse, V and 1/V
 	theta, lambda float64 // 1/V
 	kink          float64
+	kinks         bool // the kinked foot has a share, or its share is fitted
 }
 
 func channelOf(p *[parCount]float64) channel {
 	a := 2 * math.Exp(p[parN]) * thermalVoltage
-	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], kink: p[parKink]}
+	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], kink: p[parKink], kinks: p[parKink] > 0}
 }
 
 // far is the argument of the knee, in units of a, beyond which it is straight (or
 // nothing) to the last bit.
 const far = 37
 
+// pinched is how far below the knee, and how much V_DS, in units of a, it takes for
+// the square of the drain end to be nothing beside that of the source end to the last
+// bit.
+const pinched = 19
+
 // smooth is the smooth knee a ln(1 + exp(x/a)), its slope, and its derivative by a.
 func (c *channel) smooth(x float64) (s, g, da float64) {
-	z := x * c.inverse
-	switch {
-	case z > far:
-		return x, 1, 0
-	case z < -far:
+	m := math.Abs(x) * c.inverse
+	if m > far {
+		if x > 0 {
+			return x, 1, 0
+		}
 		return 0, 0, 0
-	case z >= 0:
-		e := math.Exp(-z)
-		s, g = x+c.a*logOnePlus(e), 1/(1+e)
-	default:
-		e := math.Exp(z)
-		s, g = c.a*logOnePlus(e), e/(1+e)
 	}
-	return s, g, (s - x*g) * c.inverse
+	f, d := softplus(m)
+	s, g, da = c.a*f, d, f+m*d
+	if x > 0 {
+		s, g = s+x, 1-g
+	}
+	return s, g, da
 }
 
 // kinked is the knee that is exponential, (a/2) exp(x/a - 1/2), up to x = a/2 and
@@ -66,82 +71,83 @@ func (c *channel) kinked(x float64) (s, g, da float64) {
 	return s, g, g * (1 - z)
 }
 
-// logOnePlus is ln(1+e) for 0 <= e <= 1; by its series where e is small.
-func logOnePlus(e float64) float64 {
-	if e > 1e-3 {
-		return math.Log1p(e)
-	}
-	return e * (1 - e*(0.5-e*(1.0/3-e*(0.25-e*0.2))))
-}
-
 // ends is what the channel feels at its source and its drain end, V: the current
-// goes with the difference of their squares.
+// goes with the difference of their squares. The derivatives by the kink are left
+// at 0 where that has no share and is not fitted.
 type ends struct {
-	s, sx, sa, sk     float64 // source end; its derivatives by V_GS, a and the kink
-	d, dx, dv, da, dk float64 // drain end; the same, and by -V_DS
+	x, s, sx, sa, sk  float64 // V_GS - V_T; source end; its derivatives by V_GS, a and the kink
+	share             float64 // what mobility leaves, 1/(1 + θ s)
+	foot, fx, fa      float64 // the kinked share alone
+	d, dx, dv, da, dk float64 // drain end; its derivatives by V_GS, -V_DS, a and the kink
 }
 
-// ends evaluates both at x = V_GS - V_T. Of the kinked share the drain end is what
-// a square law leaves: the source end less V_DS, or nothing.
-func (c *channel) ends(x, vds float64) (e ends) {
+// source evaluates the source end at V_GS.
+func (c *channel) source(e *ends, vgs float64) {
+	x := vgs - c.vt
+	e.x = x
 	e.s, e.sx, e.sa = c.smooth(x)
-	e.d, e.dx, e.da = c.smooth(x - vds)
+	if c.kinks {
+		e.foot, e.fx, e.fa = c.kinked(x)
+		e.sk = e.foot - e.s
+		e.s += c.kink * e.sk
+		e.sx += c.kink * (e.fx - e.sx)
+		e.sa += c.kink * (e.fa - e.sa)
+	}
+	e.share = 1 / (1 + c.theta*e.s)
+}
+
+// drain evaluates the drain end at V_DS. Of the kinked share it is what a square law
+// leaves: the source end less V_DS, or nothing.
+func (c *channel) drain(e *ends, vds float64) {
+	if x := e.x - vds; vds > pinched*c.a && x < -pinched*c.a {
+		e.d, e.dx, e.da = 0, 0, 0
+	} else {
+		e.d, e.dx, e.da = c.smooth(x)
+	}
 	e.dv = e.dx
-	f, fx, fa := c.kinked(x)
-	e.sk, e.dk = f-e.s, -e.d
-	pinched := f <= vds
-	if !pinched {
-		e.dk += f - vds
+	if !c.kinks {
+		return
 	}
-	if k := c.kink; k > 0 {
-		e.s += k * e.sk
-		e.sx += k * (fx - e.sx)
-		e.sa += k * (fa - e.sa)
-		e.d += k * e.dk
-		e.dx *= 1 - k
-		e.dv *= 1 - k
-		e.da *= 1 - k
-		if !pinched {
-			e.dx += k * fx
-			e.dv += k
-			e.da += k * fa
-		}
+	k := c.kink
+	e.dk = -e.d
+	e.d *= 1 - k
+	e.dx *= 1 - k
+	e.dv *= 1 - k
+	e.da *= 1 - k
+	if left := e.foot - vds; left >= 0 {
+		e.dk += left
+		e.d += k * left
+		e.dx += k * e.fx
+		e.dv += k
+		e.da += k * e.fa
 	}
-	return e
 }
 
-// current is I_D [A] at V_GS and V_DS [V], and its derivatives by both, S.
-func (c *channel) current(vgs, vds float64) (i, gm, gds float64) {
-	e := c.ends(vgs-c.vt, vds)
-	d := 1 / (1 + c.theta*e.s)
+// current is I_D [A] at the ends and V_DS [V], and its derivatives by V_GS and V_DS,
+// S.
+func (c *channel) current(e *ends, vds float64) (i, gm, gds float64) {
 	l := 1 + c.lambda*vds
 	q := e.s*e.s - e.d*e.d
-	k := c.half * d
-	i = k * q * l
-	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - q*c.theta*e.sx*d)
+	k := c.half * e.share
+	i = k * l * q
+	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - q*c.theta*e.share*e.sx)
 	gds = k * (2*e.d*e.dv*l + c.lambda*q)
 	return i, gm, gds
 }
 
-// partials adds to current the derivatives of I_D by every parameter, at fixed
-// V_GS and V_DS.
-func (c *channel) partials(vgs, vds float64, dp *[parCount]float64) (i, gm, gds float64) {
-	e := c.ends(vgs-c.vt, vds)
-	d := 1 / (1 + c.theta*e.s)
-	l := 1 + c.lambda*vds
+// partials writes the derivatives of current by every parameter times scale.
+func (c *channel) partials(e *ends, vds, i, gm, gds, scale float64, dp *[parCount]float64) {
+	k := c.half * e.share * scale
+	kl := k * (1 + c.lambda*vds)
 	q := e.s*e.s - e.d*e.d
-	k := c.half * d
-	i = k * q * l
-	bend := q * c.theta * d
-	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - bend*e.sx)
-	gds = k * (2*e.d*e.dv*l + c.lambda*q)
-	dp[parVt] = -gm
-	dp[parBeta] = i
-	dp[parN] = k * l * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
-	dp[parTheta] = -i * e.s * d
+	bend := q * c.theta * e.share
+	dp[parVt] = -gm * scale
+	dp[parBeta] = i * scale
+	dp[parN] = kl * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
+	dp[parTheta] = -i * scale * e.s * e.share
 	dp[parLambda] = k * q * vds
-	dp[parKink] = k * l * (2*(e.s*e.sk-e.d*e.dk) - bend*e.sk)
-	return i, gm, gds
+	dp[parKink] = kl * (2*(e.s*e.sk-e.d*e.dk) - bend*e.sk)
+	dp[parTop] = gds * scale
 }
 
 // feed is how the drain is fed and where gate and source are read: I_D and V_GS of
@@ -159,63 +165,67 @@ type feed struct {
 //
 // The right side falls as I rises, so there is one root, between 0 and the
 // smaller of vtop over the resistance and the current without it. Newton's rule
-// from start (any number), halving where a step leaves the bracket or is not half of the one before (the
-// kink has a corner), to a relative
-// 1e-11 (the last step is below 1e-6, and the rule doubles the digits).
+// from start (any number), halving where a step leaves the bracket or is not half
+// of the one before (the kink has a corner), until a step is below 1e-7 of the
+// current or moves the channel's voltages by less than 1e-6 of the knee: the rule
+// squares such shares, so the current is good to a relative 1e-11.
 func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
+	var dp [parCount]float64
+	i, _ := c.along(f, vg, vtop, start, &dp)
+	return i
+}
+
+// along gives the current of solve, its slope by vg, S, and into dp its derivatives
+// by every parameter. The derivatives are those before the last step.
+func (c *channel) along(f feed, vg, vtop, start float64, dp *[parCount]float64) (i, slope float64) {
 	r := f.source + f.drain
+	var e ends
 	if r == 0 {
-		i, _, _ := c.current(vg, vtop)
-		return i
+		c.source(&e, vg)
+		c.drain(&e, vtop)
+		i, gm, gds := c.current(&e, vtop)
+		c.partials(&e, vtop, i, gm, gds, 1, dp)
+		if f.tied {
+			gm += gds
+		}
+		return i, gm
 	}
 	lo, hi := 0.0, math.Max(vtop/r, 0)
-	i := start
-	if !(i > lo && i < hi) {
-		i, _, _ = c.current(vg, vtop)
+	i = start
+	if !(i >= lo && i < hi) {
+		c.source(&e, vg)
+		c.drain(&e, vtop)
+		i, _, _ = c.current(&e, vtop)
 		i = math.Min(i, hi)
 	}
 	before := math.Inf(1) // the step before
-	for range 80 {
-		id, gm, gds := c.current(vg-i*f.source, vtop-i*r)
-		if miss := i - id; miss > 0 {
+	for k := 1; ; k++ {
+		if f.source > 0 || k == 1 {
+			c.source(&e, vg-i*f.source)
+		}
+		vds := vtop - i*r
+		c.drain(&e, vds)
+		id, gm, gds := c.current(&e, vds)
+		scale := 1 / (1 + f.source*gm + r*gds)
+		if id < i {
 			hi = i
 		} else {
 			lo = i
 		}
-		next := i - (i-id)/(1+f.source*gm+r*gds)
-		if !(next >= lo && next <= hi) || math.Abs(next-i) > before/2 && hi-lo < math.Inf(1) {
+		next := i - (i-id)*scale
+		step := math.Abs(next - i)
+		near := step <= 1e-7*next || step*r <= 1e-6*c.a
+		if !near && (!(next >= lo && next <= hi) || step > before/2) {
 			next = lo + (hi-lo)/2
-			if hi-lo <= 1e-11*hi {
-				return next
-			}
-		} else if math.Abs(next-i) <= 1e-6*next {
-			return next
+			near = hi-lo <= 1e-11*hi
 		}
-		if next == i {
-			return i
+		if near || next == i || k == 80 {
+			c.partials(&e, vds, id, gm, gds, scale, dp)
+			if f.tied {
+				gm += gds
+			}
+			return next, gm * scale
 		}
 		i, before = next, math.Abs(next-i)
 	}
-	return i
-}
-
-// along gives the current of the circuit at vg, A, its slope by vg, S, and its
-// derivatives by every parameter into dp. start is a guess of the current.
-func (c *channel) along(f feed, vg, vtop, start float64, dp *[parCount]float64) (i, slope float64) {
-	i = c.solve(f, vg, vtop, start)
-	r := f.source + f.drain
-	_, gm, gds := c.partials(vg-i*f.source, vtop-i*r, dp)
-	slope = gm
-	if f.tied {
-		slope += gds
-	}
-	dp[parTop] = gds
-	if r == 0 {
-		return i, slope
-	}
-	scale := 1 / (1 + f.source*gm + r*gds)
-	for k := range dp {
-		dp[k] *= scale
-	}
-	return i, slope * scale
 }
