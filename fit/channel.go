@@ -32,22 +32,26 @@ func channelOf(p *[parCount]float64, foot Foot) channel {
 // nothing) to the last bit.
 const far = 37
 
+// pinched is how far below the knee, and how much V_DS, in units of a, it takes for
+// the square of the drain end to be nothing beside that of the source end to the last
+// bit.
+const pinched = 19
+
 // smooth is the smooth knee a ln(1 + exp(x/a)), its slope, and its derivative by a.
 func (c *channel) smooth(x float64) (s, g, da float64) {
-	z := x * c.inverse
-	switch {
-	case z > far:
-		return x, 1, 0
-	case z < -far:
+	m := math.Abs(x) * c.inverse
+	if m > far {
+		if x > 0 {
+			return x, 1, 0
+		}
 		return 0, 0, 0
-	case z >= 0:
-		e := math.Exp(-z)
-		s, g = x+c.a*logOnePlus(e), 1/(1+e)
-	default:
-		e := math.Exp(z)
-		s, g = c.a*logOnePlus(e), e/(1+e)
 	}
-	return s, g, (s - x*g) * c.inverse
+	f, d := softplus(m)
+	s, g, da = c.a*f, d, f+m*d
+	if x > 0 {
+		s, g = s+x, 1-g
+	}
+	return s, g, da
 }
 
 // sharp is the knee a asinh(exp(x/a)/2), its slope, and its derivative by a.
@@ -60,7 +64,11 @@ func (c *channel) sharp(x float64) (s, g, da float64) {
 		return 0, 0, 0
 	}
 	e := math.Exp(z) / 2
-	s, g = c.a*math.Asinh(e), e/math.Sqrt(1+e*e)
+	root := math.Sqrt(1 + e*e)
+	s, g = c.a*math.Log(e+root), e/root
+	if e < 1e-3 {
+		s = c.a * e * (1 - e*e/6)
+	}
 	return s, g, (s - x*g) * c.inverse
 }
 
@@ -79,73 +87,74 @@ func (c *channel) kinked(x float64) (s, g, da float64) {
 	return s, g, g * (1 - z)
 }
 
-// logOnePlus is ln(1+e) for 0 <= e <= 1; by its series where e is small.
-func logOnePlus(e float64) float64 {
-	if e > 1e-3 {
-		return math.Log1p(e)
-	}
-	return e * (1 - e*(0.5-e*(1.0/3-e*(0.25-e*0.2))))
-}
-
 // ends is what the channel feels at its source and its drain end, V: the current
 // goes with the difference of their squares.
 type ends struct {
-	s, sx, sa     float64 // source end; its derivatives by V_GS and a
-	d, dx, dv, da float64 // drain end; the same, and by -V_DS
+	x, s, sx, sa  float64 // V_GS - V_T; source end; its derivatives by V_GS and a
+	share         float64 // what mobility leaves, 1/(1 + θ s)
+	d, dx, dv, da float64 // drain end; its derivatives by V_GS, -V_DS and a
 }
 
-// ends evaluates both at x = V_GS - V_T. With the kinked foot the drain end is what
-// a square law leaves: the source end less V_DS, or nothing.
-func (c *channel) ends(x, vds float64) (e ends) {
+// source evaluates the source end at V_GS.
+func (c *channel) source(e *ends, vgs float64) {
+	e.x = vgs - c.vt
 	switch c.foot {
 	case SmoothFoot:
-		e.s, e.sx, e.sa = c.smooth(x)
-		e.d, e.dx, e.da = c.smooth(x - vds)
-		e.dv = e.dx
+		e.s, e.sx, e.sa = c.smooth(e.x)
 	case SharpFoot:
-		e.s, e.sx, e.sa = c.sharp(x)
-		e.d, e.dx, e.da = c.sharp(x - vds)
-		e.dv = e.dx
+		e.s, e.sx, e.sa = c.sharp(e.x)
 	default:
-		e.s, e.sx, e.sa = c.kinked(x)
-		if e.s > vds {
-			e.d, e.dx, e.da, e.dv = e.s-vds, e.sx, e.sa, 1
-		}
+		e.s, e.sx, e.sa = c.kinked(e.x)
 	}
-	return e
+	e.share = 1 / (1 + c.theta*e.s)
 }
 
-// current is I_D [A] at V_GS and V_DS [V], and its derivatives by both, S.
-func (c *channel) current(vgs, vds float64) (i, gm, gds float64) {
-	e := c.ends(vgs-c.vt, vds)
-	d := 1 / (1 + c.theta*e.s)
+// drain evaluates the drain end at V_DS. With the kinked foot it is what a square
+// law leaves: the source end less V_DS, or nothing.
+func (c *channel) drain(e *ends, vds float64) {
+	x := e.x - vds
+	switch {
+	case c.foot == KinkedFoot:
+		if e.d = e.s - vds; e.d > 0 {
+			e.dx, e.dv, e.da = e.sx, 1, e.sa
+		} else {
+			e.d, e.dx, e.dv, e.da = 0, 0, 0, 0
+		}
+		return
+	case vds > pinched*c.a && x < -pinched*c.a:
+		e.d, e.dx, e.da = 0, 0, 0
+	case c.foot == SmoothFoot:
+		e.d, e.dx, e.da = c.smooth(x)
+	default:
+		e.d, e.dx, e.da = c.sharp(x)
+	}
+	e.dv = e.dx
+}
+
+// current is I_D [A] at the ends and V_DS [V], and its derivatives by V_GS and V_DS,
+// S.
+func (c *channel) current(e *ends, vds float64) (i, gm, gds float64) {
 	l := 1 + c.lambda*vds
 	q := e.s*e.s - e.d*e.d
-	k := c.half * d
-	i = k * q * l
-	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - q*c.theta*e.sx*d)
+	k := c.half * e.share
+	i = k * l * q
+	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - q*c.theta*e.share*e.sx)
 	gds = k * (2*e.d*e.dv*l + c.lambda*q)
 	return i, gm, gds
 }
 
-// partials adds to current the derivatives of I_D by every parameter, at fixed
-// V_GS and V_DS.
-func (c *channel) partials(vgs, vds float64, dp *[parCount]float64) (i, gm, gds float64) {
-	e := c.ends(vgs-c.vt, vds)
-	d := 1 / (1 + c.theta*e.s)
-	l := 1 + c.lambda*vds
+// partials writes the derivatives of current by every parameter times scale.
+func (c *channel) partials(e *ends, vds, i, gm, gds, scale float64, dp *[parCount]float64) {
+	k := c.half * e.share * scale
+	kl := k * (1 + c.lambda*vds)
 	q := e.s*e.s - e.d*e.d
-	k := c.half * d
-	i = k * q * l
-	bend := q * c.theta * d
-	gm = k * l * (2*(e.s*e.sx-e.d*e.dx) - bend*e.sx)
-	gds = k * (2*e.d*e.dv*l + c.lambda*q)
-	dp[parVt] = -gm
-	dp[parBeta] = i
-	dp[parN] = k * l * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
-	dp[parTheta] = -i * e.s * d
+	bend := q * c.theta * e.share
+	dp[parVt] = -gm * scale
+	dp[parBeta] = i * scale
+	dp[parN] = kl * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
+	dp[parTheta] = -i * scale * e.s * e.share
 	dp[parLambda] = k * q * vds
-	return i, gm, gds
+	dp[parTop] = gds * scale
 }
 
 // feed is how the drain is fed and where gate and source are read: I_D and V_GS of
@@ -163,63 +172,67 @@ type feed struct {
 //
 // The right side falls as I rises, so there is one root, between 0 and the
 // smaller of vtop over the resistance and the current without it. Newton's rule
-// from start (any number), halving where a step leaves the bracket or is not half of the one before (the
-// kink has a corner), to a relative
-// 1e-11 (the last step is below 1e-7, and the rule doubles the digits).
+// from start (any number), halving where a step leaves the bracket or is not half
+// of the one before (the kink has a corner), until a step is below 1e-7 of the
+// current or moves the channel's voltages by less than 1e-6 of the knee: the rule
+// squares such shares, so the current is good to a relative 1e-11.
 func (c *channel) solve(f feed, vg, vtop, start float64) float64 {
+	var dp [parCount]float64
+	i, _ := c.along(f, vg, vtop, start, &dp)
+	return i
+}
+
+// along gives the current of solve, its slope by vg, S, and into dp its derivatives
+// by every parameter. The derivatives are those before the last step.
+func (c *channel) along(f feed, vg, vtop, start float64, dp *[parCount]float64) (i, slope float64) {
 	r := f.source + f.drain
+	var e ends
 	if r == 0 {
-		i, _, _ := c.current(vg, vtop)
-		return i
+		c.source(&e, vg)
+		c.drain(&e, vtop)
+		i, gm, gds := c.current(&e, vtop)
+		c.partials(&e, vtop, i, gm, gds, 1, dp)
+		if f.tied {
+			gm += gds
+		}
+		return i, gm
 	}
 	lo, hi := 0.0, math.Max(vtop/r, 0)
-	i := start
-	if !(i > lo && i < hi) {
-		i, _, _ = c.current(vg, vtop)
+	i = start
+	if !(i >= lo && i < hi) {
+		c.source(&e, vg)
+		c.drain(&e, vtop)
+		i, _, _ = c.current(&e, vtop)
 		i = math.Min(i, hi)
 	}
 	before := math.Inf(1) // the step before
-	for range 80 {
-		id, gm, gds := c.current(vg-i*f.source, vtop-i*r)
-		if miss := i - id; miss > 0 {
+	for k := 1; ; k++ {
+		if f.source > 0 || k == 1 {
+			c.source(&e, vg-i*f.source)
+		}
+		vds := vtop - i*r
+		c.drain(&e, vds)
+		id, gm, gds := c.current(&e, vds)
+		scale := 1 / (1 + f.source*gm + r*gds)
+		if id < i {
 			hi = i
 		} else {
 			lo = i
 		}
-		next := i - (i-id)/(1+f.source*gm+r*gds)
-		if !(next >= lo && next <= hi) || math.Abs(next-i) > before/2 && hi-lo < math.Inf(1) {
+		next := i - (i-id)*scale
+		step := math.Abs(next - i)
+		near := step <= 1e-7*next || step*r <= 1e-6*c.a
+		if !near && (!(next >= lo && next <= hi) || step > before/2) {
 			next = lo + (hi-lo)/2
-			if hi-lo <= 1e-11*hi {
-				return next
-			}
-		} else if math.Abs(next-i) <= 1e-7*next {
-			return next
+			near = hi-lo <= 1e-11*hi
 		}
-		if next == i {
-			return i
+		if near || next == i || k == 80 {
+			c.partials(&e, vds, id, gm, gds, scale, dp)
+			if f.tied {
+				gm += gds
+			}
+			return next, gm * scale
 		}
 		i, before = next, math.Abs(next-i)
 	}
-	return i
-}
-
-// along gives the current of the circuit at vg, A, its slope by vg, S, and its
-// derivatives by every parameter into dp. start is a guess of the current.
-func (c *channel) along(f feed, vg, vtop, start float64, dp *[parCount]float64) (i, slope float64) {
-	i = c.solve(f, vg, vtop, start)
-	r := f.source + f.drain
-	_, gm, gds := c.partials(vg-i*f.source, vtop-i*r, dp)
-	slope = gm
-	if f.tied {
-		slope += gds
-	}
-	dp[parTop] = gds
-	if r == 0 {
-		return i, slope
-	}
-	scale := 1 / (1 + f.source*gm + r*gds)
-	for k := range dp {
-		dp[k] *= scale
-	}
-	return i, slope * scale
 }

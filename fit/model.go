@@ -46,8 +46,7 @@ const thermalVoltage = 1.380649e-23 * 300 / 1.602176634e-19
 // resistance not included.
 func (m Model) Current(vgs, vds float64) float64 {
 	c := m.channel()
-	i, _, _ := c.current(vgs, vds)
-	return i
+	return c.solve(feed{}, vgs, vds, 0)
 }
 
 // Solve gives I_D [A] with V_top [V] behind a resistor R_L [ohm] in the drain

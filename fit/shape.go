@@ -55,7 +55,7 @@ func (w *work) shape(t *whole, r *Result) Shape {
 // 1995 (from memory). Checked: TestSubThresholdSlope.
 func (w *work) slopeFactor(t *whole) Quantity {
 	c := channelOf(&t.p, t.foot)
-	atVt, _, _ := c.current(t.p[parVt], math.Max(1, t.vtop[len(t.vtop)-1]))
+	atVt := c.solve(feed{}, t.p[parVt], math.Max(1, t.vtop[len(t.vtop)-1]), 0)
 	leak, _ := w.offCurrent(t)
 	var x, y, sigma []float64
 	for j := range w.pts {

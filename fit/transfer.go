@@ -13,13 +13,16 @@ import (
 type transfer struct {
 	f                  feed
 	foot               Foot
-	vg, vtop, i, sigma []float64         // V, V, A, A; one element a point
-	p                  [parCount]float64 // the last parameters evaluated, and the fixed ones
-	free               []int             // parameters that are fitted
-	mean, sd           [parCount]float64 // priors; sd 0: none
-	solved             []float64         // A, the model's current at each point
-	slope              []float64         // S, its slope by the gate
-	lower, upper, at   [parCount]float64 // scratch, by free parameter
+	vg, vtop, i, sigma []float64           // V, V, A, A; one element a point
+	p                  [parCount]float64   // the last parameters evaluated, and the fixed ones
+	free               []int               // parameters that are fitted
+	mean, sd           [parCount]float64   // priors; sd 0: none
+	solved             []float64           // A, the model's current at each point
+	slope              []float64           // S, its slope by the gate
+	tangent            [][parCount]float64 // its derivatives by the parameters
+	last               [parCount]float64   // the free parameters that these three belong to
+	warm               bool                // they do
+	lower, upper, at   [parCount]float64   // scratch, by free parameter
 	steps, at7         [parCount]float64
 	solver             lsq.Solver
 }
@@ -38,34 +41,52 @@ func (t *transfer) size(n int) {
 		m := n + 8
 		t.vg, t.vtop, t.i = f[:0:m], f[m:m:2*m], f[2*m:2*m:3*m]
 		t.sigma, t.solved, t.slope = f[3*m:3*m:4*m], f[4*m:4*m:5*m], f[5*m:5*m]
+		t.tangent = make([][parCount]float64, 0, m)
 	}
 	t.vg, t.vtop, t.i = t.vg[:n], t.vtop[:n], t.i[:n]
 	t.sigma, t.solved, t.slope = t.sigma[:n], t.solved[:n], t.slope[:n]
+	t.tangent, t.warm = t.tangent[:n], false
 }
 
-// eval is the problem as lsq sees it.
+// eval is the problem as lsq sees it. Where the circuit is to be solved, that starts
+// from what the derivatives at the last parameters lead to expect.
 func (t *transfer) eval(x, r, jac []float64) bool {
 	p := t.p
-	for j, k := range t.free {
-		p[k] = x[j]
+	var by [parCount]float64
+	for k, par := range t.free {
+		p[par] = x[k]
+		by[k] = x[k] - t.last[k]
+		t.last[k] = x[k]
 	}
 	c := channelOf(&p, t.foot)
+	res := t.f.source + t.f.drain
 	m := len(r)
 	n := len(t.vg)
-	var dp [parCount]float64
 	for j := range n {
+		vtop := t.vtop[j] + p[parTop]
+		tangent := &t.tangent[j]
+		guess := t.solved[j]
+		if t.warm && res > 0 {
+			to := guess
+			for k, par := range t.free {
+				to += tangent[par] * by[k]
+			}
+			if to > 0 && to*res < vtop {
+				guess = to
+			}
+		}
+		i, slope := c.along(t.f, t.vg[j], vtop, guess, tangent)
 		w := 1 / t.sigma[j]
+		t.solved[j], t.slope[j] = i, slope
+		r[j] = (i - t.i[j]) * w
 		if jac == nil {
-			t.solved[j] = c.solve(t.f, t.vg[j], t.vtop[j]+p[parTop], t.solved[j])
-			r[j] = (t.solved[j] - t.i[j]) * w
 			continue
 		}
-		t.solved[j], t.slope[j] = c.along(t.f, t.vg[j], t.vtop[j]+p[parTop], t.solved[j], &dp)
-		r[j] = (t.solved[j] - t.i[j]) * w
 		for k, par := range t.free {
-			jac[k*m+j] = dp[par] * w
+			jac[k*m+j] = tangent[par] * w
 		}
 	}
+	t.warm = true
 	row := n
 	for k, par := range t.free {
 		if !(t.sd[par] > 0) {
@@ -107,8 +128,10 @@ func (t *transfer) fit(o lsq.Options) lsq.Fit {
 	for j, k := range t.free {
 		t.lower[j], t.upper[j], t.at[j], t.steps[j] = parLower[k], parUpper[k], t.p[k], parSteps[k]
 	}
+	t.warm = false
 	n := len(t.free)
 	o.Step = t.steps[:n]
+	o.JacobianWithTrial = true
 	got := t.solver.Solve(lsq.Problem{M: t.rows(), N: n, Eval: t.eval, Lower: t.lower[:n], Upper: t.upper[:n]}, t.at[:n], o)
 	for j, k := range t.free {
 		t.p[k] = got.P[j]

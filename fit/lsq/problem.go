@@ -28,7 +28,7 @@ type Options struct {
 	// linearised problem. Default 1e-8.
 	Cosine float64
 	// RelStep is the greatest undamped step as a share of each parameter, for all
-	// free parameters at once. Default 1e-10.
+	// free parameters at once. Default 1e-12.
 	RelStep float64
 	// RelReduction is the share of S below which an expected reduction is taken
 	// for rounding. Default 1e-13.
@@ -47,7 +47,7 @@ type Options struct {
 const (
 	defaultMaxEvals     = 1000
 	defaultCosine       = 1e-8
-	defaultRelStep      = 1e-10
+	defaultRelStep      = 1e-12
 	defaultRelReduction = 1e-13
 )
 

@@ -93,7 +93,7 @@ func (s *Solver) damped(mu float64, rhs []float64) bool {
 	clear(u)
 	for c, k := range s.sel {
 		copy(s.top[c*nf:(c+1)*nf], s.r[k*nf:k*nf+k+1])
-		low[c*n+c] = root * s.d[s.free[k]]
+		low[c*n+c] = root * s.scale(s.free[k])
 	}
 	for c, k := range s.sel {
 		t, b := s.top[c*nf+c:c*nf+k+1], low[c*n:c*n+c+1]
