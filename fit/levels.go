@@ -1,45 +1,46 @@
 package fit
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // levelGap is the share of the gap between two points that a level between them may
 // be wrong by, beside the scatter of the points (judgement).
 const levelGap = 0.03
 
-// levels reads the whole curve at the currents of [LevelCurrents]: along the fitted
-// model where there is one, corrected by the residuals of the points on either side,
-// else straight in the root of the current. Quicker and coarser than a crossing: for
-// comparing curves, not for reading a threshold.
+// levels reads the whole curve at the currents of [LevelCurrents]: quicker and
+// coarser than a crossing, for comparing curves and not for reading a threshold.
 func (w *work) levels() []Level {
-	n := len(w.pts)
-	if n < 2 {
-		return nil
+	var out []Level
+	for _, i := range LevelCurrents {
+		if l := w.level(i); !math.IsNaN(l.Vg) {
+			out = append(out, l)
+		}
+	}
+	return out
+}
+
+// level is the gate voltage at current i: along the fitted model where there is one,
+// corrected by the residuals of the points on either side, else straight in the root
+// of the current; NaN where the sweep does not pass it.
+func (w *work) level(i float64) Level {
+	out := Level{I: i, Vg: math.NaN(), U: math.NaN()}
+	b := slices.IndexFunc(w.pts, func(p point) bool { return p.i >= i })
+	if b < 1 {
+		return out
+	}
+	p, q := &w.pts[b-1], &w.pts[b]
+	if !p.above() || !(q.vg > p.vg) {
+		return out
 	}
 	t := w.whole()
 	noise := usualNoise
 	if t != nil {
 		noise = t.noise
 	}
-	var out []Level
-	b := 1
-	for _, i := range LevelCurrents {
-		for b < n && w.pts[b].i < i {
-			b++
-		}
-		if b >= n {
-			break
-		}
-		p, q := &w.pts[b-1], &w.pts[b]
-		if !p.above() || p.i > i || !(q.vg > p.vg) {
-			continue
-		}
-		v := w.levelBetween(t, p, q, i)
-		if math.IsNaN(v) {
-			continue
-		}
-		u := rss(rss(noise, q.ux), levelGap*(q.vg-p.vg))
-		out = append(out, Level{I: i, Vg: w.sign * v, U: rss(u, q.u/i*(q.vg-p.vg))})
-	}
+	out.Vg = w.sign * w.levelBetween(t, p, q, i)
+	out.U = rss(rss(rss(noise, q.ux), levelGap*(q.vg-p.vg)), q.u/i*(q.vg-p.vg))
 	return out
 }
 

@@ -99,9 +99,9 @@ func (w *work) span() Quantity {
 	if !(top > 2*spanFrom) {
 		return None()
 	}
-	a, b := w.gateAt(spanFrom), w.gateAt(top)
-	if math.IsNaN(a.v) || math.IsNaN(b.v) {
+	from, to := w.level(spanFrom), w.level(top)
+	if math.IsNaN(from.Vg) || math.IsNaN(to.Vg) {
 		return None()
 	}
-	return Quantity{Value: w.sign * (b.v - a.v), U: rss(a.u, b.u), UBetween: math.NaN(), UAbsolute: math.NaN(), N: a.n + b.n}
+	return Quantity{Value: to.Vg - from.Vg, U: rss(from.U, to.U), UBetween: math.NaN(), UAbsolute: math.NaN(), N: 4}
 }
