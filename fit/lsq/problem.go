@@ -76,6 +76,7 @@ const (
 	ByStep      Reason = "converged-by-step"      // the undamped step is as short as asked for
 	ByReduction Reason = "converged-by-reduction" // S can fall no further in these digits, and the undamped step is short
 	ByExact     Reason = "converged-exactly"      // the residuals are zero to rounding
+	ByProfile   Reason = "converged-by-profile"   // both bounds of a profile were found (Profile only)
 
 	TooManyEvaluations Reason = "too-many-evaluations" // MaxEvals reached
 	Stuck              Reason = "stuck"                // no step however short brings S down, far from a minimum
@@ -83,10 +84,15 @@ const (
 	RankDeficient      Reason = "rank-deficient"       // S is at a minimum, but the readings do not tell the parameters apart
 	TooFewPoints       Reason = "too-few-points"       // fewer residuals than free parameters
 	BadInput           Reason = "bad-input"            // lengths that do not fit, NaN, a lower bound above its upper one, no Eval
+
+	// Of Profile only.
+	ProfileAtBound Reason = "profile-at-bound" // a side of the interval ends at the bound of the parameter
+	ProfileOpen    Reason = "profile-open"     // a side of the interval has no end
+	LowerMinimum   Reason = "lower-minimum"    // a refit went below the minimum it was to exceed
 )
 
 // Converged says whether the fit ended at a minimum of S with respect to every
 // free parameter.
 func (r Reason) Converged() bool {
-	return r == ByCosine || r == ByStep || r == ByReduction || r == ByExact
+	return r == ByCosine || r == ByStep || r == ByReduction || r == ByExact || r == ByProfile
 }
