@@ -178,7 +178,7 @@ func (c *run) told() bool {
 		return false
 	}
 	nf := len(c.free)
-	most := 1 / (10 * epsilon * float64(max(c.pr.M, c.pr.N)))
+	most := 1 / dependent(c.pr.M, c.pr.N)
 	for k, j := range c.free {
 		sum := 0.0
 		for i := k; i < nf; i++ {

@@ -7,8 +7,10 @@ type Problem struct {
 	// Eval writes the M residuals (model - y)/σ at the N parameters p into r and,
 	// where jac is not nil, their derivatives: jac[j*M+i] = ∂r_i/∂p_j, column by
 	// column. It must not keep or change p. False: the model is not defined at p;
-	// a step there is taken back. Residuals or derivatives that are not finite
-	// count as not defined.
+	// a step there is taken back and shortened. Residuals or derivatives that are
+	// not finite count as not defined. A limit of a single parameter belongs in
+	// Lower and Upper: steps slide along a bound, but only creep towards a place
+	// where the model ends.
 	Eval func(p, r, jac []float64) bool
 	// Lower and Upper are bounds of the parameters, N each; nil: none. An infinite
 	// bound is none either. Lower[j] = Upper[j] holds parameter j there.

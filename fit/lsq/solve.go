@@ -204,7 +204,7 @@ func (c *run) iterate() Reason {
 			continue
 		}
 		switch {
-		case gain >= goodGain || c.mu == 0 && gain >= badGain:
+		case gain >= goodGain || c.mu <= singular && gain >= badGain:
 			c.reach = grow * length
 		case gain < badGain:
 			c.reach = shrink * math.Min(c.reach, length)

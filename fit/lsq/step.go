@@ -2,6 +2,10 @@ package lsq
 
 import "math"
 
+// singular is the damping that makes a singular problem regular: small beside 1,
+// the size of the scaled columns, while its root still leaves half the digits.
+const singular = epsilon
+
 // scale is D_jj, 1 for a column that never was anything but zero.
 func (s *Solver) scale(j int) float64 {
 	if s.d[j] == 0 {
@@ -32,15 +36,19 @@ func (c *run) damping() bool {
 	for k := range c.free {
 		c.sel = append(c.sel, k)
 	}
-	low := 0.0
+	low, least := 0.0, 0.0
 	length, fall, ok := c.whole(0)
+	if !ok { // singular: as little damping as gives an answer
+		low, least = singular, singular
+		length, fall, ok = c.whole(singular)
+	}
 	if ok {
 		if length <= 1.1*c.reach {
-			c.mu = 0
+			c.mu = least
 			return true
 		}
 		if v := (length - c.reach) / (c.reach * fall); finite(v) {
-			low = v
+			low = math.Max(low, v)
 		}
 	}
 	high := 0.0
