@@ -54,7 +54,6 @@ func TestIntervalCoverage(t *testing.T) {
 	for i := range x {
 		x[i], sigma[i] = float64(i), 0.1+0.05*float64(i%3)
 	}
-	pr := straight(x, y, sigma)
 	const runs, p0, p1 = 4000, 2, -0.7
 	var s Solver
 	var scaled, known [2]int
@@ -62,8 +61,7 @@ func TestIntervalCoverage(t *testing.T) {
 		for i := range y {
 			y[i] = p0 + p1*x[i] + sigma[i]*r.NormFloat64()
 		}
-		pr = straight(x, y, sigma)
-		f := s.Solve(pr, []float64{0, 0}, Options{})
+		f := s.Solve(straight(x, y, sigma), []float64{0, 0}, Options{})
 		for j, truth := range [2]float64{p0, p1} {
 			if lo, hi := f.Interval(j, 0.95, true); lo <= truth && truth <= hi {
 				scaled[j]++

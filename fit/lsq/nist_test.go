@@ -184,6 +184,28 @@ func lanczosDigits(t *testing.T, d *strd, f *Fit) float64 {
 	return worst
 }
 
+// With all limits at nothing a fit goes on for as long as rounding lets it: to
+// nearly all the digits certified, without wasting calls on a sum of squares that
+// no longer tells.
+func TestNISTToTheEnd(t *testing.T) {
+	var s Solver
+	calls := 0
+	for _, name := range nistNames() {
+		d := loadStrd(t, "nonlinear_"+name)
+		f := s.Solve(d.problem(nistModels[name]), d.Starts["start2"], Options{Cosine: 1e-300, RelStep: 1e-300})
+		p := fewest(f.P, d.Expected.P, 11)
+		t.Logf("%-9s %-22s %4d calls, %4.1f digits", name, f.Reason, f.Evals, p)
+		if f.Reason != ByReduction || p < 9.5 {
+			t.Errorf("%s: %s, %.1f digits, want 9.5", name, f.Reason, p)
+		}
+		calls += f.Evals
+	}
+	t.Logf("%d calls in all", calls)
+	if calls > 1500 {
+		t.Errorf("%d calls in all, want at most 1500", calls)
+	}
+}
+
 // TestNISTTrial runs the same with the derivatives at every trial point: the
 // same path, with fewer calls.
 func TestNISTTrial(t *testing.T) {

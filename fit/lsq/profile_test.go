@@ -3,6 +3,8 @@ package lsq
 import (
 	"math"
 	"testing"
+
+	"gonum.org/v1/gonum/stat/distuv"
 )
 
 // On a linear problem the profile is the t interval.
@@ -57,6 +59,15 @@ func TestProfileOneParameter(t *testing.T) {
 		t.Errorf("at 95 %%: %s, low end %g", why, lo)
 	}
 	near(t, "high at 95 %", hi, math.Log(4+2.7764451051977987*h), 1e-6)
+	// A level at which e^p is all but 0 at the low end: there √(S - S_min) hardly
+	// changes any more, and the search must not creep.
+	q := 3.999 / h
+	level := 1 - 2*distuv.StudentsT{Mu: 0, Sigma: 1, Nu: 4}.Survival(q)
+	lo, _, why = s.Profile(pr, f, 0, level, Options{})
+	if why != ByProfile {
+		t.Errorf("nearly open: %s", why)
+	}
+	near(t, "low when nearly open", lo, math.Log(0.001), 1e-3)
 	// With a bound of the parameter on the way the interval ends there.
 	pr.Lower = []float64{-1}
 	f = s.Solve(pr, []float64{0}, Options{})

@@ -136,9 +136,9 @@ func (c *run) release() {
 
 // trial makes the next point from the damped step in c.z. A parameter that would
 // leave its bounds stops there, and the rest is solved again. It gives the fall of S
-// that the linearised problem expects, -(Rδ)·(2 Qᵀr + Rδ), whether any parameter
-// moves, and whether one was stopped.
-func (c *run) trial() (expected float64, moved, stopped bool) {
+// that the linearised problem expects, -(Rδ)·(2 Qᵀr + Rδ), and whether any
+// parameter moves.
+func (c *run) trial() (expected float64, moved bool) {
 	nf := len(c.free)
 	step := c.step[:nf]
 	clear(step)
@@ -149,7 +149,6 @@ func (c *run) trial() (expected float64, moved, stopped bool) {
 	}
 	copy(c.next, c.p)
 	for c.advance(step) {
-		stopped = true
 		if len(c.sel) == 0 {
 			break
 		}
@@ -181,7 +180,7 @@ func (c *run) trial() (expected float64, moved, stopped bool) {
 	for i, x := range v {
 		expected -= x * (2*c.qtr[i] + x)
 	}
-	return expected, moved, stopped
+	return expected, moved
 }
 
 // advance goes from step towards the solution z of the columns sel, up to the
