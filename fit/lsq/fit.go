@@ -8,11 +8,11 @@ import (
 
 // Fit is where a fit ended.
 type Fit struct {
-	P          []float64 // parameters, N; the best point reached; nil only for BadInput without a usable start
+	P          []float64 // parameters, N: the best point reached; the start, or NaN, where nothing was begun
 	SSR        float64   // sum of the squared residuals there, dimensionless; NaN where the model is not defined
 	M, N       int       // residuals, parameters
 	Evals      int       // calls of Eval
-	Iterations int       // accepted steps tried for
+	Iterations int       // steps accepted
 	Reason     Reason
 	// AtBound marks parameters that lie on one of their bounds. They are taken as
 	// fixed there: they have no covariance, and count as no parameter in DOF.
@@ -35,7 +35,8 @@ func (f *Fit) DOF() int {
 // at a bound: the covariance of the parameters when the standard deviations used
 // as weights are true. Unit: that of parameter i times that of parameter j. NaN
 // for a parameter at a bound, and for all where the readings do not tell the
-// parameters apart or there is no fit.
+// parameters apart or there is no fit. Where Reason is not one of a minimum it is
+// that of the point reached, and worth no more than that point.
 func (f *Fit) Cov(i, j int) float64 {
 	if f.cov == nil || i < 0 || j < 0 || i >= f.N || j >= f.N {
 		return math.NaN()
