@@ -52,7 +52,7 @@ const (
 )
 
 // wholeOptions stop a fit when a further step would not matter (parSteps).
-var wholeOptions = lsq.Options{MaxEvals: 200}
+var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
 
 // whole is the model laid through the curve, nil where there is none to be had.
 func (w *work) whole() *whole {
