@@ -40,9 +40,8 @@ func (w *work) settleCurrents() {
 	if w.ammeter && (w.byLoad || w.byDrain) {
 		w.compareMeters()
 	}
-	disputed := w.pickCurrents()
-	if disputed > 0 {
-		w.settleDisputes()
+	if w.pickCurrents() > 0 {
+		w.guessDisputes()
 	}
 	w.pts = slices.DeleteFunc(w.pts, func(p point) bool {
 		bad := !finiteNumber(p.i) || !finiteNumber(p.u)
@@ -225,7 +224,7 @@ func (w *work) pickCurrents() (disputed int) {
 		case math.IsNaN(a) || prefix:
 			w.use(p, true)
 		case !w.agree(p, a, l):
-			p.i = math.NaN()
+			p.i, p.disputed = math.NaN(), true
 			disputed++
 		case w.byDrain:
 			w.use(p, false) // a difference of large voltages only checks
@@ -239,20 +238,21 @@ func (w *work) pickCurrents() (disputed int) {
 // agree allows four standard deviations of the last digits, a count each for
 // offsets, and 2 % for noise and heating of R_L.
 func (w *work) agree(p *point, a, l float64) bool {
-	u := rss(random(p.qa, p.na), random(p.ql, p.nl))
+	u := rss(p.wa, p.wl)
 	return math.Abs(a-l) <= 4*u+p.qa+p.ql+0.02*math.Max(math.Abs(a), math.Abs(l))+2*w.supplyDoubt()
 }
 
 // use takes one of the two readings alone.
 func (w *work) use(p *point, load bool) {
 	a, l := w.both(p)
+	p.load = load
 	if load {
-		p.i, p.q, p.u = l, p.ql, random(p.ql, p.nl)
+		p.i, p.q, p.u, p.room = l, p.ql, random(p.ql, p.nl), p.wl
 		return
 	}
-	p.i, p.q, p.u = a, p.qa, random(p.qa, p.na)
+	p.i, p.q, p.u, p.room = a, p.qa, random(p.qa, p.na), p.wa
 	if w.onLoad {
-		p.q, p.u = p.q/w.ratio, p.u/w.ratio
+		p.q, p.u, p.room = p.q/w.ratio, p.u/w.ratio, p.room/w.ratio
 	}
 }
 
@@ -269,119 +269,11 @@ func (w *work) mix(p *point, a, l float64) {
 	wl := 1 - wa
 	p.i = wa*a + wl*l
 	p.u = rss(wa*ua, wl*ul)
+	p.room = rss(wa*p.wa, wl*p.wl)
 	p.q = p.ql
 	if wa > wl {
 		p.q = p.qa
 	}
-}
-
-// settleDisputes asks the neighbours where the two readings of a point
-// disagree, keeps the reading that lies where a rising curve must lie, and
-// leaves the point out when neither does.
-func (w *work) settleDisputes() {
-	var kinds [3]struct{ ammeter, load []float64 }
-	codes := [3]string{CodePrefixLost, CodeDecadeSpike, CodeCurrentMismatch}
-	settled := make([]point, 0, len(w.pts))
-	for j := range w.pts {
-		p := w.pts[j]
-		if !math.IsNaN(p.i) {
-			settled = append(settled, p)
-			continue
-		}
-		a, l := w.both(&p)
-		lo, hi := w.expected(j)
-		da, dl := outside(a, lo, hi), outside(l, lo, hi)
-		kind := 2
-		if r := math.Abs(math.Log10(math.Abs(a / l))); math.Abs(r-3) < 0.1 {
-			kind = 0
-		} else if math.Abs(r-1) < 0.06 {
-			kind = 1
-		}
-		// 30 %: beyond what interpolation between neighbours may be wrong by.
-		if math.IsNaN(lo) || math.Min(da, dl) > 0.3 {
-			w.leave(p.k, codes[kind], "ammeter and "+w.loadName()+" disagree ("+amps(p.a)+
-				" and "+amps(p.l)+") and the neighbours fit neither")
-			continue
-		}
-		useLoad := dl < da || dl == da && random(p.ql, p.nl) < random(p.qa, p.na)
-		w.use(&p, useLoad)
-		if useLoad {
-			kinds[kind].ammeter = append(kinds[kind].ammeter, w.gate*p.vg)
-		} else {
-			kinds[kind].load = append(kinds[kind].load, w.gate*p.vg)
-		}
-		settled = append(settled, p)
-	}
-	w.pts = settled
-	for k, v := range kinds {
-		if len(v.ammeter) > 0 {
-			w.warn(codes[k], "The ammeter's reading contradicts "+w.loadName()+" and the neighbours at "+places(v.ammeter)+"; "+w.loadName()+" is used there.")
-		}
-		if len(v.load) > 0 {
-			w.warn(codes[k], w.loadName()+" contradicts the ammeter and the neighbours at "+places(v.load)+"; the ammeter is used there.")
-		}
-	}
-}
-
-// expected is the range in which the current of point j must lie by its nearest
-// settled neighbours; NaN when there is none.
-func (w *work) expected(j int) (lo, hi float64) {
-	before, after := j-1, j+1
-	for before >= 0 && math.IsNaN(w.pts[before].i) {
-		before--
-	}
-	for after < len(w.pts) && math.IsNaN(w.pts[after].i) {
-		after++
-	}
-	switch {
-	case before < 0 && after >= len(w.pts):
-		return math.NaN(), math.NaN()
-	case before < 0:
-		return math.Inf(-1), w.pts[after].i
-	case after >= len(w.pts):
-		return w.pts[before].i, math.Inf(1)
-	}
-	return w.between(&w.pts[before], &w.pts[after], w.pts[j].vg)
-}
-
-// between is where a transfer curve may lie at vg between two of its points:
-// its logarithm bends down and, until load or series resistance limit it, its
-// square root bends up, so it lies between the two chords. A leakage under the
-// foot bends the logarithm up: it is taken off before.
-func (w *work) between(a, b *point, vg float64) (lo, hi float64) {
-	if !(b.vg > a.vg) {
-		return math.Min(a.i, b.i), math.Max(a.i, b.i)
-	}
-	t := (vg - a.vg) / (b.vg - a.vg)
-	ia, ib := math.Max(a.i, 0), math.Max(b.i, 0)
-	r := (1-t)*math.Sqrt(ia) + t*math.Sqrt(ib)
-	hi = r * r
-	lo = math.Min(ia, ib)
-	if fa, fb := ia-w.base, ib-w.base; fa > 2*a.q+3*a.u && fa > 0.02*w.base && fb > fa {
-		lo = w.base + math.Exp((1-t)*math.Log(fa)+t*math.Log(fb))
-	}
-	if lo > hi {
-		lo, hi = hi, lo
-	}
-	return lo, hi
-}
-
-// outside is the logarithm of the factor by which x lies outside lo…hi, 0
-// within.
-func outside(x, lo, hi float64) float64 {
-	switch {
-	case x > hi:
-		if hi <= 0 {
-			return math.Inf(1)
-		}
-		return math.Log(x / hi)
-	case x < lo:
-		if x <= 0 {
-			return math.Inf(1)
-		}
-		return math.Log(lo / x)
-	}
-	return 0
 }
 
 // median of x, which is sorted in place; NaN when empty.

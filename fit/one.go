@@ -113,7 +113,7 @@ func (w *work) contradictory() bool {
 	if n >= 3 && 5*n >= all {
 		w.warn(CodeOscillation, count(n, "point contradicts", "points contradict")+" a rising curve, as with a part that oscillates.")
 	}
-	return w.hopeless || n >= 3 && 5*n > 2*all
+	return n >= 3 && 5*n > 2*all
 }
 
 // tellAccuracy says which statement is missing for an absolute uncertainty.
