@@ -18,18 +18,6 @@ type soundPair struct {
 	leaks bool // the drain really leaks more than is allowed
 }
 
-// withAmmeterAndLoad reads the load circuit by both meters.
-func (d simDevice) withAmmeterAndLoad(r *rand.Rand, b simBench, m simMeters, vg []float64) Curve {
-	var c Curve
-	for _, v := range vg {
-		i := d.at(b, v)
-		c.Vg = append(c.Vg, m.gate.read(r, v))
-		c.Vl = append(c.Vl, m.load.read(r, i*b.rl))
-		c.Id = append(c.Id, m.current.read(r, i))
-	}
-	return c
-}
-
 // turnedGrid is from…to in steps, each up to a share of a step off.
 func turnedGrid(r *rand.Rand, from, to, step, off float64) []float64 {
 	var v []float64
@@ -49,9 +37,30 @@ func statementOf(m simMeter) []Accuracy {
 	return a
 }
 
+// within gives a meter a gain and a zero inside its statement of 0.5 % and two
+// counts, each a rectangle of its own.
+type within struct {
+	simMeter
+	zero float64 // counts
+}
+
+func (m simMeter) somewhereWithin(r *rand.Rand) within {
+	m.gain = 0.005 * (2*r.Float64() - 1)
+	return within{m, 2 * (2*r.Float64() - 1)}
+}
+
+func (m within) read(r *rand.Rand, x float64) float64 {
+	if m.counts == 0 {
+		return x
+	}
+	return m.simMeter.read(r, x+m.zero*m.tops[m.rangeOf(x)]/m.counts)
+}
+
 // soundSelfMade draws pairs of sweeps of self-made devices: three laws, five
-// circuits, steps of 20 to 120 mV set exactly or turned by hand, beginning 2 V below the
-// threshold to just at it, three benches.
+// circuits, steps of 20 to 120 mV set exactly or turned by hand, beginning 2 V
+// below the threshold to just at it; read by two classes of meters, anywhere
+// within their statements (which are given or not), or exactly. The load circuit
+// is read at the resistor, at the drain, by an ammeter, or by two of these.
 func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
 	r := randomSource(seed)
 	for k := range n {
@@ -61,10 +70,12 @@ func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
 		}
 		b := []simBench{
 			{circuit: Diode}, {circuit: Load, rl: 10, vdd: 12}, {circuit: Load, rl: 1000, vdd: 12},
+			{circuit: Load, rl: []float64{4.7, 22, 100}[r.IntN(3)], vdd: []float64{5, 13.8, 28}[r.IntN(3)]},
 			{circuit: Fixed, vds: 10}, {circuit: Fixed, vds: 0.1},
-		}[r.IntN(5)]
+		}[r.IntN(6)]
 		which := r.IntN(3)
 		m := []simMeters{handheld(), fineMeters(), exact()}[which]
+		gate, current, load := m.gate.somewhereWithin(r), m.current.somewhereWithin(r), m.load.somewhereWithin(r)
 		step := 0.02 + 0.1*r.Float64()
 		off := []float64{0, 0.3}[r.IntN(2)]
 		if off == 0 {
@@ -73,11 +84,15 @@ func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
 		s := b.setup()
 		s.TestCurrent, s.IdleCurrent = []float64{250e-6, 1e-3, 10e-3}[r.IntN(3)], 100e-3
 		if which < 2 && r.IntN(2) == 0 {
-			s.Gate, s.Current, s.Load = statementOf(m.gate), statementOf(m.current), statementOf(m.load)
+			s.Gate, s.Current, s.Load, s.Drain = statementOf(m.gate), statementOf(m.current), statementOf(m.load), statementOf(m.load)
 		}
-		both := b.circuit == Load && r.IntN(3) == 0
-		p := soundPair{setup: s, leaks: d.at(b, 0) > 0.5*math.Max(leakShare*s.TestCurrent, leakLeast)}
-		p.name = fmt.Sprintf("self-made %d: %s %g Ω, law %d, V_T %.2f, β %.2f, meters %d, step %.3f off %g", k, b.circuit, b.rl, d.law, d.vt, d.beta, which, step, off)
+		columns := "i"
+		if b.circuit == Load {
+			columns = []string{"i", "l", "l", "il", "d", "id", "dv"}[r.IntN(7)]
+		}
+		p := soundPair{setup: s, leaks: d.leak > 0.5*math.Max(leakShare*s.TestCurrent, leakLeast)}
+		p.name = fmt.Sprintf("self-made %d: %s %g Ω %g V, law %d, V_T %.2f, β %.2f, leak %g, meters %d, columns %s, stated %v, step %.3f off %g",
+			k, b.circuit, b.rl, b.vdd, d.law, d.vt, d.beta, d.leak, which, columns, s.Gate != nil, step, off)
 		for j := range p.curve {
 			from := d.vt - 2*r.Float64()*r.Float64()
 			if r.IntN(4) == 0 {
@@ -87,21 +102,23 @@ func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
 			if j == 1 {
 				slices.Reverse(grid)
 			}
-			if both {
-				p.curve[j] = d.withAmmeterAndLoad(r, b, m, grid)
-				continue
-			}
-			c := Curve{}
+			c := &p.curve[j]
 			for _, v := range grid {
 				i := d.at(b, v)
-				c.Vg = append(c.Vg, m.gate.read(r, v))
-				if b.circuit == Load {
-					c.Vl = append(c.Vl, m.load.read(r, i*b.rl))
-				} else {
-					c.Id = append(c.Id, m.current.read(r, i))
+				c.Vg = append(c.Vg, gate.read(r, v))
+				for _, column := range columns {
+					switch column {
+					case 'i':
+						c.Id = append(c.Id, current.read(r, i))
+					case 'l':
+						c.Vl = append(c.Vl, load.read(r, i*b.rl))
+					case 'd':
+						c.Vd = append(c.Vd, load.read(r, b.vdd-i*b.rl))
+					case 'v':
+						c.Vdd = append(c.Vdd, load.read(r, b.vdd))
+					}
 				}
 			}
-			p.curve[j] = c
 		}
 		visit(p)
 	}
@@ -120,7 +137,9 @@ func soundSpice(t *testing.T, seed uint64, n int, visit func(p soundPair)) {
 		o := dense[r.IntN(len(dense))]
 		which := r.IntN(3)
 		m := []simMeters{handheld(), fineMeters(), exact()}[which]
+		gate, current, load := m.gate.somewhereWithin(r), m.current.somewhereWithin(r), m.load.somewhereWithin(r)
 		step := 0.02 + 0.1*r.Float64()
+		both := r.IntN(3) == 0
 		s := o.setup
 		s.TestCurrent, s.IdleCurrent = []float64{250e-6, 1e-3, 10e-3}[r.IntN(3)], 100e-3
 		if which < 2 && r.IntN(2) == 0 {
@@ -140,11 +159,12 @@ func soundSpice(t *testing.T, seed uint64, n int, visit func(p soundPair)) {
 			var c Curve
 			for _, v := range turnedGrid(r, from, to, step, 0.3*float64(r.IntN(2))) {
 				q := nearestOf(o.vg, sign*v)
-				c.Vg = append(c.Vg, m.gate.read(r, o.vg[q]))
-				if o.curve.Vl != nil && r.IntN(1) == 0 {
-					c.Vl = append(c.Vl, m.load.read(r, o.curve.Vl[q]))
-				} else {
-					c.Id = append(c.Id, m.current.read(r, o.id[q]))
+				c.Vg = append(c.Vg, gate.read(r, o.vg[q]))
+				if both || o.curve.Vl == nil {
+					c.Id = append(c.Id, current.read(r, o.id[q]))
+				}
+				if o.curve.Vl != nil {
+					c.Vl = append(c.Vl, load.read(r, o.curve.Vl[q]))
 				}
 			}
 			if j == 1 {

@@ -38,10 +38,24 @@ func (w *work) footNoise(least int) float64 {
 }
 
 // raiseToFoot gives no point a smaller uncertainty than the meter shows at the
-// foot: its last digits are not its noise.
+// foot: its last digits are not its noise. Least of all where the current is the
+// difference of two large voltages: there a short foot must do, and where there is
+// none the noise that is common with handheld meters.
 func (w *work) raiseToFoot() {
 	noise := w.footNoise(footLeast)
+	short := noise
+	if noise == 0 && w.byDrain {
+		short = w.footNoise(footHint)
+	}
 	for j := range w.pts {
-		w.pts[j].u = math.Max(w.pts[j].u, noise)
+		p := &w.pts[j]
+		p.u = math.Max(p.u, noise)
+		switch {
+		case !w.byDrain || !p.load || p.nl > 0:
+		case short > 0:
+			p.u = math.Max(p.u, short)
+		default:
+			p.u = math.Max(p.u, p.wl)
+		}
 	}
 }
