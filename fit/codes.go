@@ -23,6 +23,7 @@ const (
 	CodeNotSaturated       = "not-saturated"
 	CodeCoarseNearCurrent  = "coarse-near-current"
 	CodeHeating            = "heating"
+	CodeGateHistory        = "gate-history" // up and down sweep apart by the same whatever the power
 	CodeHeatingNotChecked  = "heating-not-checked"
 	CodeOscillation        = "oscillation"
 	CodeSweepsDisagree     = "sweeps-disagree"
@@ -108,6 +109,9 @@ var Codes = []CodeInfo{
 	{CodeHeating,
 		"Up and down sweep differ by more than their uncertainty: the part warms up, or drifts.",
 		"Measure faster, pulsed or with less drain voltage, or improve the cooling."},
+	{CodeGateHistory,
+		"Up and down sweep differ by more than their uncertainty, and by the same whatever the power: the gate remembers where it was (trapped charge), or something changed between the sweeps.",
+		"Let the part rest at its off voltage before every sweep, sweep all parts the same way, and repeat the up sweep: hysteresis comes again, a change does not."},
 	{CodeHeatingNotChecked,
 		"There is no sweep in the other direction, so heating could not be checked.",
 		"Sweep down as well as up."},

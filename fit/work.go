@@ -24,6 +24,7 @@ type work struct {
 	byLoad  bool    // there are currents from R_L and V_L
 	byDrain bool    // there are currents from R_L and V_DD-V_D, in place of V_L
 	ratio   float64 // ammeter current over load current, 1 when there is no telling
+	warm    float64 // 1/A², by how much that ratio changes with the square of the load current
 	doubt   float64 // relative standard uncertainty because two currents disagree
 	onLoad  bool    // the currents used are on the scale of V_L/R_L, not of the ammeter
 	vdd     float64 // V, supply; NaN when not known
