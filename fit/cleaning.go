@@ -62,6 +62,7 @@ func (w *work) clean() {
 	w.dropStuck()
 	w.dropGateSpikes()
 	w.survey()
+	w.findJumps()
 	w.mergeEqual(true)
 	if !w.falling {
 		w.dropFaults()
@@ -279,7 +280,7 @@ func (w *work) dropStuckGate() {
 			for _, v := range w.pts[j:e] {
 				lo, hi = math.Min(lo, v.i), math.Max(hi, v.i)
 			}
-			if lo > 5*w.pts[j].q && hi > lo*w.stepRatio() && hi-lo > 10*w.pts[j].q {
+			if lo > 5*w.pts[j].q && hi > lo*w.stepRatio() && hi-lo > 10*w.pts[j].q && w.stoodStill(j, e) {
 				text := "the gate reading stands at " + volts(w.gate*w.pts[j].vg) + " while the current goes from " + amps(lo) + " to " + amps(hi)
 				for k := e - 1; k >= j; k-- {
 					w.drop(k, CodeStuckReading, text)

@@ -306,14 +306,14 @@ func (w *work) warming(ratios, loads []float64) bool {
 		}
 		x := loads[k] / top
 		x *= x
-		if x < 0.25 {
+		if x < 0.4 {
 			cool++
 		} else if x > 0.5 {
 			hot++
 		}
 		n, sx, sy, sxx, sxy, syy = n+1, sx+x, sy+r, sxx+x*x, sxy+x*r, syy+r*r
 	}
-	if cool < 3 || hot < 3 {
+	if cool < 2 || hot < 2 {
 		return false // no two ends to compare
 	}
 	sxx, sxy, syy = sxx-sx*sx/n, sxy-sx*sy/n, syy-sy*sy/n

@@ -59,7 +59,7 @@ func (w *work) evaluate(r *Result) {
 		w.warn(CodeFewPoints, r.Why)
 		return
 	}
-	if w.contradictory() {
+	if w.oscillates() {
 		r.State = Declined
 		r.Why = "Too many readings contradict a rising curve."
 		return
@@ -93,27 +93,6 @@ func stateCode(s State) string {
 		return CodeAboveRange
 	}
 	return ""
-}
-
-// contradictory reports whether so many points were left out that the rest
-// cannot be trusted either, and warns of oscillation from a fifth on.
-func (w *work) contradictory() bool {
-	n := 0
-	for _, l := range w.left {
-		if l.Code == CodeOutOfLine || l.Code == CodeRangeGlitch {
-			n++
-		}
-	}
-	all := n
-	for j := range w.pts {
-		if w.pts[j].i > w.tiny && w.pts[j].above() {
-			all++
-		}
-	}
-	if n >= 3 && 5*n >= all {
-		w.warn(CodeOscillation, count(n, "point contradicts", "points contradict")+" a rising curve, as with a part that oscillates.")
-	}
-	return n >= 3 && 5*n > 2*all
 }
 
 // tellAccuracy says which statement is missing for an absolute uncertainty.

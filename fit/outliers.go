@@ -108,6 +108,9 @@ func (w *work) dropFaults() {
 		}
 		code, text := w.nameFault(p)
 		w.leave(p.k, code, text)
+		if code != CodeDecadeSpike && !w.leftover(p) {
+			w.odd++
+		}
 	}
 }
 

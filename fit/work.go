@@ -35,6 +35,8 @@ type work struct {
 	base    float64 // A, smallest current of the curve if above zero: leakage
 	tiny    float64 // A, current below which no spikes are looked for
 	falling bool    // the current falls as the gate is driven harder
+	odd     int     // points left out that contradict a rising curve without a sign of a leftover
+	jumps   string  // where the current jumps at constant gate voltage, a sentence
 	limit   float64 // V, least displacement of a point that is called a fault; 0: not yet known
 
 	pts       []point      // usable points in the order in which the part turns on
