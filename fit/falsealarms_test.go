@@ -57,8 +57,8 @@ func (m within) read(r *rand.Rand, x float64) float64 {
 }
 
 // soundSelfMade draws pairs of sweeps of self-made devices: three laws, five
-// circuits, steps of 20 to 120 mV set exactly or turned by hand, beginning 2 V
-// below the threshold to just at it; read by two classes of meters, anywhere
+// circuits, steps of 20 to 120 mV set exactly or turned by hand, beginning at 0 V,
+// or 2 V below the threshold to just at it; read by two classes of meters, anywhere
 // within their statements (which are given or not), or exactly. The load circuit
 // is read at the resistor, at the drain, by an ammeter, or by two of these.
 func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
@@ -86,6 +86,7 @@ func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
 		if which < 2 && r.IntN(2) == 0 {
 			s.Gate, s.Current, s.Load, s.Drain = statementOf(m.gate), statementOf(m.current), statementOf(m.load), statementOf(m.load)
 		}
+		fromOff := r.IntN(8) == 0
 		columns := "i"
 		if b.circuit == Load {
 			columns = []string{"i", "l", "l", "il", "d", "id", "dv"}[r.IntN(7)]
@@ -95,7 +96,10 @@ func soundSelfMade(seed uint64, n int, visit func(p soundPair)) {
 			k, b.circuit, b.rl, b.vdd, d.law, d.vt, d.beta, d.leak, which, columns, s.Gate != nil, step, off)
 		for j := range p.curve {
 			from := d.vt - 2*r.Float64()*r.Float64()
-			if r.IntN(4) == 0 {
+			switch {
+			case fromOff:
+				from = 0
+			case r.IntN(4) == 0:
 				from = d.vt - 0.05*r.Float64()
 			}
 			grid := turnedGrid(r, math.Max(0, from), d.vt+0.5+1.2*r.Float64(), step, off)
@@ -192,7 +196,7 @@ func nearestOf(x []float64, v float64) int {
 var alarmCodes = []string{
 	CodeOutOfLine, CodeDecadeSpike, CodeRangeGlitch, CodeStuckReading, CodeOscillation, CodeDrainLeakage,
 	CodeCurrentMismatch, CodePrefixLost, CodeSignTurned, CodeFallingCurve, CodeOpen, CodeShorted, CodeWrongWayRound,
-	CodeSweepsDisagree, CodeHeating,
+	CodeSweepsDisagree, CodeHeating, CodeGateHistory,
 }
 
 // alarmRates counts, by code, the sweeps (pairs for the last two) on which it
@@ -221,7 +225,8 @@ func (a *alarmRates) take(t *testing.T, p soundPair) {
 	}
 	a.pairs++
 	r := Combine(rs, []string{"up", "down"})
-	for _, code := range []string{CodeSweepsDisagree, CodeHeating} {
+	Drift([]Swept{{p.curve[0], p.setup, "up"}, {p.curve[1], p.setup, "down"}}, &r)
+	for _, code := range []string{CodeSweepsDisagree, CodeHeating, CodeGateHistory} {
 		if r.Has(code) && rs[0].State == rs[1].State {
 			a.count(t, code, p.name+": "+warningText(r, code))
 		}
@@ -235,16 +240,21 @@ func (a *alarmRates) count(t *testing.T, code, text string) {
 	}
 }
 
+// of is how many sweeps, or pairs of them, could have raised a code.
+func (a *alarmRates) of(code string) int {
+	switch code {
+	case CodeSweepsDisagree, CodeHeating, CodeGateHistory:
+		return a.pairs
+	}
+	return a.sweeps
+}
+
 func (a *alarmRates) String() string {
 	var b strings.Builder
 	fmt.Fprintf(&b, "%d sweeps, %d pairs:", a.sweeps, a.pairs)
 	for _, code := range alarmCodes {
-		of := a.sweeps
-		if code == CodeSweepsDisagree || code == CodeHeating {
-			of = a.pairs
-		}
 		if a.n[code] > 0 {
-			fmt.Fprintf(&b, " %s %.2f %% (%d)", code, 100*float64(a.n[code])/float64(of), a.n[code])
+			fmt.Fprintf(&b, " %s %.2f %% (%d)", code, 100*float64(a.n[code])/float64(a.of(code)), a.n[code])
 		}
 	}
 	return b.String()
@@ -259,12 +269,8 @@ func TestFalseAlarms(t *testing.T) {
 	t.Logf("simulator: %s", &spice)
 	for _, a := range []*alarmRates{&own, &spice} {
 		for _, code := range alarmCodes {
-			of := a.sweeps
-			if code == CodeSweepsDisagree || code == CodeHeating {
-				of = a.pairs
-			}
-			if a.n[code]*200 > of {
-				t.Errorf("%s on %d of %d", code, a.n[code], of)
+			if a.n[code]*200 > a.of(code) {
+				t.Errorf("%s on %d of %d", code, a.n[code], a.of(code))
 			}
 		}
 	}

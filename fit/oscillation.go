@@ -101,7 +101,7 @@ func (w *work) findJumps() {
 	n := len(w.pts)
 	for j := 0; j < n; {
 		e := j + 1
-		for e < n && w.pts[e].vg-w.pts[j].vg <= held {
+		for e < n && w.pts[e].vg-w.pts[e-1].vg <= held && w.pts[e].vg-w.pts[j].vg <= 3*held {
 			e++
 		}
 		if e-j < 2 || w.pts[e-1].i < w.tiny || j == 0 && e == n {
@@ -115,7 +115,7 @@ func (w *work) findJumps() {
 				lo, hi, m = math.Min(lo, p.i), math.Max(hi, p.i), m+1
 			}
 		}
-		if m >= 2 && lo > 0 && math.Log(hi/lo) > math.Max(0.05, 4*slope*held) && hi-lo > 10*w.pts[j].room+10*w.pts[j].q {
+		if m >= 2 && lo > 0 && math.Log(hi/lo) > math.Max(0.05, slope*(3*held+w.pts[e-1].vg-w.pts[j].vg)) && hi-lo > 10*w.pts[j].room+10*w.pts[j].q {
 			points += m
 			where = append(where, w.gate*w.pts[j].vg)
 			if hi-lo > highest-lowest {
