@@ -21,6 +21,7 @@ const (
 	CodeFewPoints          = "few-points"
 	CodeSubThresholdOnly   = "sub-threshold-only"
 	CodeNotSaturated       = "not-saturated"
+	CodeNotLinear          = "not-linear" // the channel is never a plain resistor
 	CodeCoarseNearCurrent  = "coarse-near-current"
 	CodeHeating            = "heating"
 	CodeGateHistory        = "gate-history" // up and down sweep apart by the same whatever the power
@@ -103,6 +104,9 @@ var Codes = []CodeInfo{
 	{CodeNotSaturated,
 		"The drain voltage is too small against the overdrive for this method at the points named.",
 		"Raise the drain supply or use a smaller load resistor."},
+	{CodeNotLinear,
+		"The overdrive stays below the drain voltage, so that the channel is never the plain resistor that this method needs.",
+		"Sweep to a higher gate voltage, or make the drain voltage smaller."},
 	{CodeCoarseNearCurrent,
 		"The points near the current asked for lie too far apart to interpolate well.",
 		"Take steps of 10 mV or less around that gate voltage."},

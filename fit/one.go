@@ -222,6 +222,12 @@ func (w *work) extrapolated(r *Result) {
 	case w.s.Circuit == NoCircuit:
 		w.warn(CodeNoCircuit, "The circuit is not given: constant-current values only.")
 	case w.s.Circuit == Fixed && w.fixedVds() < unreadVds:
+		if never, saturated := w.neverLinear(); never {
+			if t, ok := w.squareRoot(); saturated && ok {
+				set("sqrt", t)
+			}
+			return
+		}
 		curve, ok := w.resistiveCurve()
 		if !ok {
 			return
