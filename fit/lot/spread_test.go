@@ -392,7 +392,8 @@ func TestSpreadOfAnything(t *testing.T) {
 			VgsthMin: rapid.Float64().Draw(t, "min"),
 		}
 		if rapid.Bool().Draw(t, "known") {
-			opt.Known = &Known{RobustSD: map[fit.Key]float64{fit.KeyVgsth: 0.1, fit.KeyBeta: 0.1, fit.KeyGmIdle: math.NaN()}, Devices: 20}
+			opt.Known = &Known{RobustSD: map[fit.Key]float64{fit.KeyVgsth: 0.1, fit.KeyBeta: 0.1, fit.KeyGmIdle: math.NaN(), KeySpan: 0.01,
+				CurveKey(1e-3): 1e-3, CurveKey(5e-3): 2e-3}, Devices: 20}
 		}
 		s := SpreadOf(devs, opt)
 		if len(s.Devices) != len(devs) || len(s.Summary) != len(fit.Keys) || s.Populations < 1 || (s.Populations == 2) != (s.Split != nil) {
@@ -424,19 +425,17 @@ func TestSpreadOfAnything(t *testing.T) {
 	})
 }
 
-// cleanDevices draws a lot, with now and then an odd device.
+// cleanDevices draws a lot with curves, with now and then an odd device.
 func cleanDevices(t *rapid.T) []Device {
 	rng := rand.New(rand.NewPCG(rapid.Uint64().Draw(t, "seed"), 1))
-	n := rapid.IntRange(4, 60).Draw(t, "n")
-	devs := make([]Device, n)
-	for i := range devs {
-		times := 1.0
-		if rng.IntN(15) == 0 {
-			times = 0.6
+	return usual.lot(rng, rapid.IntRange(4, 60).Draw(t, "n"), func(_ int, d *simDie) {
+		switch rng.IntN(30) {
+		case 0:
+			d.beta *= 0.6
+		case 1:
+			d.rs += 0.2
 		}
-		devs[i] = die(rng, deviceName(i), 0.05, times)
-	}
-	return devs
+	})
 }
 
 // Flags must not depend on where zero lies, on the unit of gain, on the order of
@@ -453,7 +452,11 @@ func TestInvariance(t *testing.T) {
 			r := &moved[i].Result
 			r.Vgsth.Value += shift
 			r.VgsIdle.Value += shift
-			for _, q := range []*fit.Quantity{&r.Beta, &r.GmIdle, &r.GmMax} {
+			r.Levels = slices.Clone(r.Levels)
+			for k := range r.Levels {
+				r.Levels[k].Vg += shift
+			}
+			for _, q := range []*fit.Quantity{&r.Beta, &r.GmIdle} {
 				q.Value *= scale
 				q.U *= scale
 			}
