@@ -37,14 +37,43 @@ func (l *judge) gains() []*column {
 	if first == nil || len(first.sorted) == 0 {
 		return l.span()
 	}
-	out := []*column{first}
+	out := []*column{l.oneMethod(first)}
 	for _, k := range []fit.Key{fit.KeyGmIdle, fit.KeyBeta} {
-		c := l.columns[k]
-		if n := len(c.sorted); c != first && n > 0 && (n >= fewest || 2*n >= len(first.sorted)) {
+		if k == first.key {
+			continue
+		}
+		c := l.oneMethod(l.columns[k])
+		if n := len(c.sorted); n > 0 && (n >= fewest || 2*n >= len(first.sorted)) {
 			out = append(out, c)
 		}
 	}
 	return out
+}
+
+// oneMethod leaves out gain factors that were not found by the method of most
+// devices: those of a straight line through √I and of one through I differ by
+// more than devices do. Other quantities stay as they are.
+func (l *judge) oneMethod(c *column) *column {
+	if c.key != fit.KeyBeta {
+		return c
+	}
+	count := map[string]int{}
+	var most string
+	for i, x := range c.x {
+		if m := l.devs[i].Result.Method; !math.IsNaN(x) {
+			if count[m]++; count[m] > count[most] || count[m] == count[most] && m < most {
+				most = m
+			}
+		}
+	}
+	if count[most] == len(c.sorted) {
+		return c
+	}
+	other := make([]bool, len(c.x))
+	for i := range other {
+		other[i] = l.devs[i].Result.Method != most
+	}
+	return c.without(other)
 }
 
 // span is the gate span, where any device has one.

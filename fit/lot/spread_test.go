@@ -251,6 +251,35 @@ func TestGateSpan(t *testing.T) {
 	t.Log(reasons(s.Devices[6]))
 }
 
+// Gain factors of two methods are not compared: here those of one are a third
+// greater.
+func TestGainFactorsOfTwoMethods(t *testing.T) {
+	var devs []Device
+	for i := range 30 {
+		beta := 2 + 0.05*math.Sin(float64(3*i))
+		d := measured(deviceName(i), map[fit.Key]float64{fit.KeyVgsth: 3 + 0.05*math.Sin(float64(5*i)), fit.KeyBeta: beta, fit.KeyGmIdle: math.Sqrt(beta / 2)}, 1e-3)
+		d.Result.Method = "sqrt"
+		if i%4 == 0 {
+			d.Result.Method = "ratio"
+			d.Result.Beta.Value *= 1.3
+		}
+		devs = append(devs, d)
+	}
+	if s := SpreadOf(devs, SpreadOptions{}); s.Populations != 1 || flagged(s) != "" || s.Limits[fit.KeyBeta].K == 0 {
+		t.Errorf("%d populations, flagged %q, limits %+v", s.Populations, flagged(s), s.Limits)
+	}
+	devs[1].Result.Beta.Value = 1.3
+	if got := flagged(SpreadOf(devs, SpreadOptions{})); got != "D2(off-family-gain)" {
+		t.Errorf("flagged %q, want D2", got)
+	}
+	for i := range devs { // said to be of one method, the two are two populations
+		devs[i].Result.Method = "sqrt"
+	}
+	if s := SpreadOf(devs, SpreadOptions{}); s.Populations != 2 {
+		t.Errorf("%d populations", s.Populations)
+	}
+}
+
 // A poor reading explains what it shows; a good one at the same place does not.
 func TestOwnUncertainty(t *testing.T) {
 	values := slices.Clone(ten)
