@@ -73,6 +73,20 @@ func TestTablesAreSmooth(t *testing.T) {
 			}
 		}
 	}
+	for q := 1; q <= 70; q++ {
+		for n := fewest; n < 30_000; n += 1 + n/50 {
+			k := curveLimit(n, q)
+			if !(k > 3.9 && k < 30) {
+				t.Errorf("limit for n=%d, %d departures: %v", n, q, k)
+			}
+			if more := curveLimit(n, q+1); more < k*0.999 {
+				t.Errorf("limit for n=%d: %v for %d departures, %v for one more", n, k, q, more)
+			}
+			if next := curveLimit(n+2, q); next > 1.03*k {
+				t.Errorf("limit for %d departures rises from %v at n=%d to %v at %d", q, k, n, next, n+2)
+			}
+		}
+	}
 	if k := DefaultLimit(7, 1); !math.IsNaN(k) {
 		t.Errorf("limit for 7 devices: %v, want none", k)
 	}

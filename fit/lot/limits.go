@@ -15,7 +15,9 @@ import (
 // fixed below, and k was found by simulation so that all three together, over
 // all quantities looked at, happen in 1.9 % of normal lots: see tables.go and
 // TestLongTables, which makes the tables again. Quantities are taken as
-// independent, which errs on the side of fewer flags where they are not.
+// independent, which errs on the side of fewer flags where they are not: gain
+// factor and transconductance mostly say the same, and counting them as one would
+// give limits 7 % nearer in lots of ten and 3 % in lots of forty.
 const (
 	totalLevel = 0.019 // of any false alarm in a lot
 	splitLevel = 0.004 // of these, of being called two populations

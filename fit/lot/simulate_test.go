@@ -178,13 +178,17 @@ func goRows(name, doc string, rows []sizeRow) string {
 	return b.String()
 }
 
-func TestLongTables(t *testing.T) {
-	mode := long(t)
-	split, limit, curve := allTables()
-	text := "// Made by TestLongTables with GATESILL_LONG=write; do not edit.\n\npackage lot\n" +
+// tablesFile is tables.go with these rows.
+func tablesFile(split, limit, curve []sizeRow) string {
+	return "// Made by TestLongTables with GATESILL_LONG=write; do not edit.\n\npackage lot\n" +
 		goRows("splitTable", "// splitTable holds critical scores of the parting: number of devices, and for 1 to 6\n// quantities the score that normal lots exceed in 0.4 % of lots.", split) +
 		goRows("limitTable", "// limitTable holds default limits in robust spreads: number of devices, and for 1 to\n// 6 quantities the limit with which 1.9 % of normal lots get any false alarm.", limit) +
 		goRows("curveTable", "// curveTable holds the same for 2, 4, 8, 16, 32 and 64 quantities by which lots are\n// not parted.", curve)
+}
+
+func TestLongTables(t *testing.T) {
+	mode := long(t)
+	text := tablesFile(allTables())
 	if mode == "write" {
 		if err := os.WriteFile("tables.go", []byte(text), 0o644); err != nil {
 			t.Fatal(err)
@@ -197,5 +201,31 @@ func TestLongTables(t *testing.T) {
 	}
 	if string(have) != text {
 		t.Errorf("tables.go differs from a fresh simulation:\n%s", text)
+	}
+}
+
+// The file of tables is laid out as it is made, and one size of it is found again
+// from a few lots.
+func TestTablesAreMade(t *testing.T) {
+	have, err := os.ReadFile("tables.go")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if string(have) != tablesFile(splitTable, limitTable, curveTable) {
+		t.Error("tables.go is not laid out as TestLongTables does")
+	}
+	split, limit, curve := tableRows(10, 40_000) // 1,000,000 lots in the file
+	for _, c := range []struct {
+		name  string
+		row   sizeRow
+		table []sizeRow
+		tol   float64
+	}{{"score", split, splitTable, 0.05}, {"limit", limit, limitTable, 0.05}, {"limit of curves", curve, curveTable, 0.10}} {
+		for column := range 4 { // beyond, a handful of lots decide
+			got, want := c.row.values[column], lookup(c.table, 10, float64(column))
+			if math.Abs(got/want-1) > c.tol {
+				t.Errorf("%s of ten devices, column %d: %.2f, file %.2f", c.name, column, got, want)
+			}
+		}
 	}
 }
