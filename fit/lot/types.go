@@ -8,15 +8,18 @@
 //
 // [SpreadOf] looks in this order: devices with a fault of their own (open,
 // shorted, leaking, ...), whether the lot is two populations, and only then
-// single devices outside the limits of their lot. The limits are set so that at
+// single devices outside the limits of their lot: by gate voltage, by gain factor
+// and transconductance at the idle current, and by the whole curve, where it is
+// not what threshold and gain let expect (curve.go). Two populations are looked
+// for by gate voltage and gains, not by the curve. The limits are set so that at
 // most 2 % of lots without anything odd, of any size, get any flag for standing
-// apart or are called two populations; that holds for values spread like a
-// normal distribution (gains: they or their logarithms) and was found by
-// simulation, see limits.go. Lots with heavier tails get more: with those of
-// Student's t with 5 degrees of freedom, 6 % of lots of 10, 14 % of lots of 20,
-// 25 % of lots of 40 and 58 % of lots of 120 have a flagged device. Of lots spread
-// evenly over a range (sorted by their seller) up to 7 % are called two
-// populations.
+// apart or are called two populations, all quantities together; that holds for
+// values spread like a normal distribution (gains: they or their logarithms) and
+// was found by simulation, see limits.go. Lots with heavier tails get more: with
+// those of Student's t with 5 degrees of freedom in all that differs, 5 % of lots
+// of 10, 15 % of lots of 20, 32 % of lots of 40 and 71 % of lots of 120 have a
+// flagged device (by one quantity alone 6, 14, 25 and 58 %). Of lots spread evenly
+// over a range (sorted by their seller) up to 7 % are called two populations.
 package lot
 
 import (
