@@ -171,8 +171,12 @@ func TestFalseAlarms(t *testing.T) {
 		{name: "one quantity in steps of 0.3 sd", keys: oneKey, step: 0.3, draw: normal},
 	}
 	for _, k := range kinds {
-		for _, n := range []int{4, 7, 8, 10, 13, 26, 40, 70, 250} {
-			runs := min(1000, 30_000/n)
+		sizes, most := []int{4, 7, 8, 10, 13, 26, 40, 70, 250}, 1000
+		if k.family != nil { // these take longer
+			sizes, most = []int{4, 6, 8, 10, 20, 40, 120}, 500
+		}
+		for _, n := range sizes {
+			runs := min(most, 30*most/n)
 			either, split := k.alarms(n, runs)
 			bound := 0.02*float64(runs) + 3.1*math.Sqrt(0.02*0.98*float64(runs))
 			if float64(either) > bound {
