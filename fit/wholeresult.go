@@ -34,6 +34,8 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	for j := range t.vg {
 		if !t.apart[j] {
 			n++
+		}
+		if !t.apart[j] || math.Abs(t.residual(j)) < plainlyOff {
 			continue
 		}
 		p := &w.pts[t.from[j]]
@@ -43,7 +45,7 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	top := slices.Max(t.i)
 	vt := Quantity{Value: t.p[parVt], U: random[0], N: n}
 	out := Threshold{From: t.from[0], To: t.from[len(t.from)-1] + 1}
-	out.Vt = w.gateQuantity(vt.Value, math.Max(random[0], w.stepFloor(t.middle())), model[0], n)
+	out.Vt = w.gateQuantity(vt.Value, rss(math.Max(random[0], w.stepFloor(t.middle())), t.between), model[0], n)
 	beta := math.Exp(t.p[parBeta])
 	out.Beta = w.withGain(Quantity{Value: beta, U: beta * random[1], UBetween: math.NaN(), N: n}, top, 1, 2)
 	out.Beta.UAbsolute = rss(out.Beta.UAbsolute, beta*model[1])
@@ -111,9 +113,9 @@ func (t *whole) farthest() string {
 // scatter of the points causes, and that which the floors would if they were scatter.
 func (t *whole) spread(w *work) (random, model [parCount]float64) {
 	m, n := t.rows(), len(t.free)
-	buf := make([]float64, m*(n+1))
-	r, jac := buf[:m], buf[m:]
-	if !t.eval(t.got.P, r, jac) {
+	t.room(m, n)
+	jac := t.jac
+	if !t.eval(t.got.P, t.r, jac) {
 		return
 	}
 	top := slices.Max(t.i)
