@@ -40,7 +40,16 @@ const (
 
 // feet are the shapes of a knee that are tried; how well they describe the points
 // decides, or weighs, between them.
-var feet = [...]Foot{SmoothFoot, SharpFoot, KinkedFoot}
+var feet = [...]struct {
+	Foot
+	n, spread float64 // slope factor to expect, and the standard deviation of its logarithm
+	cost      float64 // how rare it is: twice a log likelihood
+}{
+	{SmoothFoot, usualN, usualNSpread, 0},
+	{SharpFoot, usualN, usualNSpread, 0},
+	{KinkedFoot, usualN, usualNSpread, rareFoot},
+	{KinkedFoot, 0.1, usualNSpread, rareFoot},
+}
 
 const (
 	// plainlyWorse is by how much more the cost of the other foot may be for it to
@@ -67,22 +76,24 @@ func wrong(x, y float64) float64 {
 // along is the model laid through the points around one crossing.
 type along struct {
 	transfer
-	w        *work
-	c        *crossing
-	iref     float64   // A
-	from     []int     // index of each point in work.pts
-	a, b     int       // index here of the points around the crossing
-	noise    float64   // V, scatter of the gate readings
-	leak     float64   // A, what flows with the channel off
-	squeezed bool      // the resistor takes over within three points
-	at       float64   // V, the reading
-	cost     float64   // how badly the model describes the points, on the scale of minus twice a log likelihood
-	doubt    float64   // by how much more than usual the model is wrong here, as a factor
-	model    []float64 // A, of each point: the part of sigma that is the model's
-	got      lsq.Fit
-	r, jac   []float64
-	left     spreading
-	place    [2 * krigeSide]int // of its residuals
+	w            *work
+	c            *crossing
+	iref         float64 // A
+	from         []int   // index of each point in work.pts
+	a, b         int     // index here of the points around the crossing
+	noise, share float64 // V, scatter of the gate readings
+	rare         float64
+	leak         float64   // A, what flows with the channel off
+	squeezed     bool      // the resistor takes over within three points
+	at           float64   // V, the reading
+	cost         float64   // how badly the model describes the points, on the scale of minus twice a log likelihood
+	doubt        float64   // by how much more than usual the model is wrong here, as a factor
+	model        []float64 // A, of each point: the part of sigma that is the model's
+	got          lsq.Fit
+	r, jac       []float64
+	left         spreading
+	place        [2 * krigeSide]int // of its residuals
+	parts        [4]float64
 }
 
 // readAlong reads the crossing c at iref off the model; false where the plain rules
@@ -98,13 +109,17 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 		return false
 	}
 	var v, u, gm, cost [len(feet)]float64
+	var parts [len(feet)][4]float64
 	begin := t.p
 	best := math.Inf(1)
 	for k, foot := range feet {
-		t.p, t.foot = begin, foot
+		t.p, t.foot, t.rare = begin, foot.Foot, foot.cost
+		t.mean[parN], t.sd[parN] = math.Log(foot.n), foot.spread
+		t.p[parN] = t.mean[parN]
 		cost[k] = math.Inf(1)
 		if t.lay(best + plainlyWorse) {
 			v[k], u[k], gm[k] = t.read()
+			parts[k] = t.parts
 			cost[k] = t.cost
 		}
 		if !(u[k] < math.Inf(1)) {
@@ -116,6 +131,13 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 		return false
 	}
 	var sum, mean, second, slope float64
+	var bestParts [4]float64
+	for k := range feet {
+		if cost[k] == best {
+			bestParts = parts[k]
+			bestParts[3] = float64(k)
+		}
+	}
 	for k := range feet {
 		if share := math.Exp((best - cost[k]) / 2); share > 1e-3 {
 			sum += share
@@ -131,6 +153,9 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 		return false
 	}
 	c.v, c.u, c.gm, c.n = mean, all, slope/sum, len(t.vg)
+	c.parts = bestParts
+	c.noise = t.noise
+	c.sq = t.squeezed
 	return true
 }
 
@@ -155,9 +180,7 @@ func (t *along) lay(most float64) bool {
 		}
 		if pass == 1 {
 			t.cost = (float64(t.rows()-len(t.free)) + 2) * math.Log(t.fits())
-			if t.foot == KinkedFoot {
-				t.cost += rareFoot
-			}
+			t.cost += t.rare
 			if t.cost > most {
 				return false
 			}
@@ -216,9 +239,9 @@ func (t *transfer) crowded(p *point, top float64) bool {
 
 // begin sets the parameters to start from and what is known of them beforehand.
 func (t *along) begin() bool {
-	t.noise = usualNoise
+	t.noise, t.share = usualNoise, typicalNoise
 	if wh := t.w.whole(); wh != nil {
-		t.noise = math.Min(wh.noise, math.Max(t.w.scatterNear(t.c.b), usualNoise/4))
+		t.noise, t.share = t.w.components(wh)
 		t.p = wh.p
 	}
 	if (t.w.whole() == nil || t.squeezed) && !t.start(t.w.resistive()) {
@@ -271,7 +294,7 @@ func (t *along) weigh() {
 // included.
 func (t *along) random(j int) float64 {
 	p := &t.w.pts[t.from[j]]
-	return rss(math.Max(p.u, p.q/2), t.slope[j]*rss(t.noise, p.ux))
+	return rss(rss(math.Max(p.u, p.q/2), t.share*p.i), t.slope[j]*rss(t.noise, p.ux))
 }
 
 // fitFromSeveral starts from gains that are greater and greater: where the points
@@ -369,11 +392,7 @@ func (t *along) read() (v, u, gm float64) {
 		model += s * s
 	}
 	model *= math.Max(0.1, math.Min(t.fits(), 9))
+	t.parts = [4]float64{random, gap * gap, modelPart * model, t.left.size}
 	model = gap*gap + modelPart*model
-	if debugAlong != nil {
-		debugAlong(t)
-	}
 	return v, math.Sqrt(random + model), slope
 }
-
-var debugAlong func(*along)
