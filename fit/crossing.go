@@ -44,9 +44,6 @@ type crossing struct {
 	never   bool    // never reaches it
 	coarse  bool    // points too far apart there
 	limited bool    // the current is below the floor of the counts
-	parts   [4]float64
-	noise   float64
-	sq      bool
 }
 
 func noCrossing() crossing {

@@ -44,6 +44,7 @@ type work struct {
 	model     *whole       // the transfer model laid through the curve; nil: none
 	laid      bool         // it was tried
 	along     along        // the model near a crossing, scratch
+	out       []standout   // scratch
 	left      []LeftOut
 	warns     []Warning
 }
