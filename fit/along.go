@@ -37,16 +37,18 @@ const (
 	leastOn    = 4
 )
 
-// What is known beforehand: of the slope factor (with the standard deviation of its
-// logarithm), of what mobility and source resistance do together, 1/V, and of a
+// What is known beforehand (common practice, no source): of the slope factor and of
+// the gain factor, A/V², with the standard deviations of their logarithms; of what mobility and source resistance do together, 1/V, and of a
 // supply that was stated, as a share of it. Where the points are few because the
 // load resistor takes over, and where the whole curve tells of θ, less is left open.
 const (
-	usualN, usualNSpread         = 1.4, 0.5
-	usualTheta, usualThetaSpread = 0.1, 0.6
-	squeezedTheta                = 0.2
-	toldTheta                    = 0.1
-	statedSupply                 = 0.005
+	usualN, usualNSpread           = 1.4, 0.5
+	usualGain, usualGainSpread     = 3, 1.5
+	usualTheta, usualThetaSpread   = 0.1, 0.6
+	usualLambda, usualLambdaSpread = 0.01, 0.01 // 1/V
+	squeezedTheta                  = 0.2
+	toldTheta                      = 0.1
+	statedSupply                   = 0.005
 )
 
 // depth is how far below the threshold x = V_GS - V_T lies, V: smoothly from 0
@@ -148,10 +150,16 @@ func (t *along) begin() bool {
 		return false
 	}
 	t.free = append(t.free[:0], parVt, parBeta, parN, parTheta)
+	t.sd[parBeta] = 0
 	switch {
 	case t.squeezed:
 		t.mean[parTheta], t.sd[parTheta] = usualTheta, squeezedTheta
-		t.free = append(t.free, parTop)
+		if wh != nil {
+			t.mean[parTheta], t.sd[parTheta] = wh.p[parTheta], rss(squeezedTheta, wh.spread(parTheta))
+		}
+		t.mean[parBeta], t.sd[parBeta] = math.Log(usualGain), usualGainSpread
+		t.free = append(t.free, parLambda, parTop)
+		t.mean[parLambda], t.sd[parLambda] = usualLambda, usualLambdaSpread
 		t.mean[parTop], t.sd[parTop] = 0, statedSupply*t.vtop[0]
 	case wh != nil:
 		t.mean[parTheta], t.sd[parTheta] = t.p[parTheta], toldTheta
@@ -211,4 +219,14 @@ func (t *along) weigh() {
 func (t *along) random(j int) float64 {
 	p := &t.w.pts[t.from[j]]
 	return rss(rss(math.Max(p.u, p.q/2), t.share*p.i), t.slope[j]*rss(t.noise, p.ux))
+}
+
+// spread is the standard deviation of a parameter as the whole curve tells it.
+func (t *whole) spread(par int) float64 {
+	for f, k := range t.free {
+		if k == par {
+			return math.Sqrt(t.got.Cov(f, f))
+		}
+	}
+	return 0
 }

@@ -199,13 +199,13 @@ func (t *along) takeGains() {
 		}
 	}
 	mid, ssr, at, cost := t.p, t.got.SSR, t.at, t.cost
-	t.free = append(t.free[:0], parVt, parN, parTheta, parTop)
+	t.free = append(t.free[:0], parVt, parN, parTheta, parLambda, parTop)
 	for k := range gainSteps {
 		t.p, t.at = mid, at
 		t.p[parBeta] += float64(k-gainSteps/2) * gainStride * spread
 		t.got = t.fit(alongOptions)
 		v, _ := t.gateFor(t.iref, t.at)
-		more := t.got.SSR - ssr
+		more := t.got.SSR + t.surprise(parBeta) - ssr
 		if math.IsNaN(v) || more > plainlyWorse {
 			continue
 		}
@@ -213,7 +213,14 @@ func (t *along) takeGains() {
 		v, u, gm := t.read()
 		t.readings.add(v, u, gm, cost+more*temper/2) // of one shape, true likelihoods
 	}
-	t.free = append(t.free[:0], parVt, parBeta, parN, parTheta, parTop)
+	t.free = append(t.free[:0], parVt, parBeta, parN, parTheta, parLambda, parTop)
+}
+
+// surprise is the square of how far parameter par lies from what was expected of it,
+// in standard deviations.
+func (t *along) surprise(par int) float64 {
+	d := (t.p[par] - t.mean[par]) / t.sd[par]
+	return d * d
 }
 
 // spare is the number of residuals beyond the parameters fitted.
@@ -277,7 +284,7 @@ func (t *along) leftOver() {
 	p := &t.left
 	p.n = 0
 	for j := max(0, t.b-krigeSide); j < min(len(t.vg), t.b+krigeSide); j++ {
-		if s := t.random(j) / t.slope[j]; t.slope[j] > 0 && s < clearPlace {
+		if s := rss(t.random(j), t.leak) / t.slope[j]; t.slope[j] > 0 && s < clearPlace {
 			p.x[p.n], p.r[p.n], p.s[p.n] = t.vg[j], (t.solved[j]-t.i[j])/t.slope[j], s
 			t.place[p.n] = j
 			p.n++
