@@ -38,9 +38,11 @@ const (
 )
 
 // What is known beforehand (common practice, no source): of the slope factor and of
-// the gain factor, A/V², with the standard deviations of their logarithms; of what mobility and source resistance do together, 1/V, and of a
-// supply that was stated, as a share of it. Where the points are few because the
-// load resistor takes over, and where the whole curve tells of θ, less is left open.
+// the gain factor, A/V², with the standard deviations of their logarithms; of what
+// mobility and source resistance do together, 1/V; of channel-length modulation, 1/V;
+// and of a supply that was stated, as a share of it. Where the points are few because
+// the load resistor takes over, and where the whole curve tells of θ, less of it is
+// left open.
 const (
 	usualN, usualNSpread           = 1.4, 0.5
 	usualGain, usualGainSpread     = 3, 1.5

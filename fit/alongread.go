@@ -45,7 +45,9 @@ const (
 	clearPlace = 0.05
 )
 
-var alongOptions = lsq.Options{MaxEvals: 40}
+// alongOptions stop a fit when every parameter is within a hundredth of its standard
+// error of the best.
+var alongOptions = lsq.Options{MaxEvals: 40, Cosine: 2e-3, JacobianWithTrial: true}
 
 // readings are those of one crossing by different models.
 type readings struct {

@@ -6,7 +6,7 @@ const (
 	// usualWorth is how many points the usual scatter is worth beside those seen.
 	usualWorth = 2
 	// separations is how often the two components are told apart anew.
-	separations = 12
+	separations = 40
 	// scatterShare is the share of the greatest current from which points tell of
 	// the scatter: below it the shape of the knee does more.
 	scatterShare = 0.01
@@ -69,6 +69,9 @@ func (w *work) standouts(t *whole) []standout {
 // M. Laird and D. B. Rubin, J. Roy. Statist. Soc. B 39 (1977) 1-38 (from memory).
 // Checked: TestComponents.
 func (w *work) components(t *whole) (gate, share float64) {
+	if w.apart {
+		return w.gateScatter, w.currentScatter
+	}
 	const a0, b0 = usualNoise * usualNoise, typicalNoise * typicalNoise
 	a, b := a0, b0
 	seen := w.standouts(t)
@@ -86,5 +89,6 @@ func (w *work) components(t *whole) (gate, share float64) {
 		a = (a*sa + usualWorth*a0) / (n + usualWorth)
 		b = (b*sb + usualWorth*b0) / (n + usualWorth)
 	}
-	return math.Sqrt(a), math.Sqrt(b)
+	w.apart, w.gateScatter, w.currentScatter = true, math.Sqrt(a), math.Sqrt(b)
+	return w.gateScatter, w.currentScatter
 }

@@ -45,8 +45,12 @@ type work struct {
 	laid      bool         // it was tried
 	along     along        // the model near a crossing, scratch
 	out       []standout   // scratch
-	left      []LeftOut
-	warns     []Warning
+
+	apart          bool    // the next two were found
+	gateScatter    float64 // V, of single gate readings about the curve
+	currentScatter float64 // of single currents, as a share
+	left           []LeftOut
+	warns          []Warning
 }
 
 // point is one usable point, with the signs of an n-channel part.
