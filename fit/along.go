@@ -18,9 +18,10 @@ import (
 const (
 	farShare  = 0.004
 	kneeShare = 0.03
-	gapShare  = 0.5  // of what the model may be wrong by from one point to the other, half way
+	modelPart = 0.3
 	onShare   = 0.05 // of V_DS, where the load resistor has taken most of the supply
 	deepest   = 0.15 // V, beyond which a knee is no more wrong
+	mostDoubt = 10
 	// alongRatio bounds the currents of the points used, as a factor to the current
 	// asked for.
 	alongRatio = 300
@@ -29,12 +30,24 @@ const (
 	leastAlong = 5
 	leastOn    = 4
 	// What is known of knees beforehand: slope factor (logarithmic standard
-	// deviation), share of the kinked foot; of mobility, 1/V; and of a supply that
+	// deviation); of mobility, 1/V; and of a supply that
 	// was stated, as a share.
 	usualN, usualNSpread         = 1.4, 0.5
-	usualKink, usualKinkSpread   = 0.3, 0.4
-	usualTheta, usualThetaSpread = 0.1, 0.2
+	usualTheta, usualThetaSpread = 0.1, 0.6
 	statedSupply                 = 0.005
+	squeezedTheta                = 0.2
+)
+
+// feet are the shapes of a knee that are tried; how well they describe the points
+// decides, or weighs, between them.
+var feet = [...]Foot{SmoothFoot, SharpFoot, KinkedFoot}
+
+const (
+	// plainlyWorse is by how much more the cost of the other foot may be for it to
+	// count at all.
+	plainlyWorse = 14
+	// rareFoot is what the kinked foot costs beforehand.
+	rareFoot = 8
 )
 
 var alongOptions = lsq.Options{MaxEvals: 40}
@@ -63,9 +76,13 @@ type along struct {
 	leak     float64   // A, what flows with the channel off
 	squeezed bool      // the resistor takes over within three points
 	at       float64   // V, the reading
+	cost     float64   // how badly the model describes the points, on the scale of minus twice a log likelihood
+	doubt    float64   // by how much more than usual the model is wrong here, as a factor
 	model    []float64 // A, of each point: the part of sigma that is the model's
 	got      lsq.Fit
 	r, jac   []float64
+	left     spreading
+	place    [2 * krigeSide]int // of its residuals
 }
 
 // readAlong reads the crossing c at iref off the model; false where the plain rules
@@ -80,21 +97,74 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	if !t.choose() || !t.begin() {
 		return false
 	}
-	t.at = (t.vg[t.a] + t.vg[t.b]) / 2
-	for pass := range 3 {
+	var v, u, gm, cost [len(feet)]float64
+	begin := t.p
+	best := math.Inf(1)
+	for k, foot := range feet {
+		t.p, t.foot = begin, foot
+		cost[k] = math.Inf(1)
+		if t.lay(best + plainlyWorse) {
+			v[k], u[k], gm[k] = t.read()
+			cost[k] = t.cost
+		}
+		if !(u[k] < math.Inf(1)) {
+			cost[k] = math.Inf(1)
+		}
+		best = math.Min(best, cost[k])
+	}
+	if math.IsInf(best, 1) {
+		return false
+	}
+	var sum, mean, second, slope float64
+	for k := range feet {
+		if share := math.Exp((best - cost[k]) / 2); share > 1e-3 {
+			sum += share
+			mean += share * v[k]
+			second += share * (u[k]*u[k] + v[k]*v[k])
+			slope += share * gm[k]
+		}
+	}
+	mean /= sum
+	all := math.Sqrt(math.Max(0, second/sum-mean*mean))
+	a, b := t.vg[t.a], t.vg[t.b]
+	if most := 3*rss(t.noise, w.pts[c.b].ux) + 0.02*(b-a); mean < a-most || mean > b+most {
+		return false
+	}
+	c.v, c.u, c.gm, c.n = mean, all, slope/sum, len(t.vg)
+	return true
+}
+
+// lay fits the model; false where it comes to nothing, or is plainly worse than
+// what has been found before: a weighted sum of squares above most.
+func (t *along) lay(most float64) bool {
+	t.at, t.doubt = (t.vg[t.a]+t.vg[t.b])/2, 1
+	for pass := range 4 {
 		t.weigh()
 		if t.squeezed && pass == 0 {
 			t.fitFromSeveral()
 		} else {
 			t.got = t.fit(alongOptions)
 		}
-		v, _ := t.gateFor(iref, t.at)
+		v, _ := t.gateFor(t.iref, t.at)
 		if math.IsNaN(v) {
 			return false
 		}
 		t.at = v
+		if pass < 1 {
+			continue
+		}
+		if pass == 1 {
+			t.cost = (float64(t.rows()-len(t.free)) + 2) * math.Log(t.fits())
+			if t.foot == KinkedFoot {
+				t.cost += rareFoot
+			}
+			if t.cost > most {
+				return false
+			}
+		}
+		t.doubt = math.Max(1, math.Min(t.doubt*math.Sqrt(t.fits()), mostDoubt))
 	}
-	return t.read()
+	return true
 }
 
 // choose takes the points around the crossing: those with currents near the one
@@ -148,21 +218,26 @@ func (t *transfer) crowded(p *point, top float64) bool {
 func (t *along) begin() bool {
 	t.noise = usualNoise
 	if wh := t.w.whole(); wh != nil {
-		t.noise = wh.noise
+		t.noise = math.Min(wh.noise, math.Max(t.w.scatterNear(t.c.b), usualNoise/4))
 		t.p = wh.p
 	}
 	if (t.w.whole() == nil || t.squeezed) && !t.start(t.w.resistive()) {
 		return false
 	}
-	t.free = append(t.free[:0], parVt, parBeta, parN, parKink)
+	t.free = append(t.free[:0], parVt, parBeta, parN, parTheta)
+	t.mean[parTheta], t.sd[parTheta] = usualTheta, usualThetaSpread
+	switch {
+	case t.squeezed:
+		t.sd[parTheta] = squeezedTheta
+	case t.w.whole() != nil:
+		t.mean[parTheta], t.sd[parTheta] = t.p[parTheta], squeezedTheta/2
+	}
 	t.mean[parN], t.sd[parN] = math.Log(usualN), usualNSpread
-	t.mean[parKink], t.sd[parKink] = usualKink, usualKinkSpread
 	if t.squeezed {
-		t.free = append(t.free, parTheta, parTop)
-		t.mean[parTheta], t.sd[parTheta] = usualTheta, usualThetaSpread
+		t.free = append(t.free, parTop)
 		t.mean[parTop], t.sd[parTop] = 0, statedSupply*t.vtop[0]
 	}
-	t.p[parN], t.p[parKink] = t.mean[parN], t.mean[parKink]
+	t.p[parN] = t.mean[parN]
 	if cap(t.model) < len(t.vg) {
 		t.model = make([]float64, len(t.vg), cap(t.vg))
 	}
@@ -182,7 +257,7 @@ func (t *along) weigh() {
 		s := math.Max(t.slope[j], 1e-3*t.iref)
 		off := 0.0
 		if j != t.a && j != t.b {
-			off = s * wrong(p.vg-vt, t.at-vt)
+			off = s * t.doubt * wrong(p.vg-vt, t.at-vt)
 		}
 		if t.crowded(p, t.vtop[j]) {
 			off = rss(off, rss(typicalNoise*p.i, onShare*math.Max(0, t.vtop[j]/t.f.drain-t.solved[j])))
@@ -214,17 +289,19 @@ func (t *along) fitFromSeveral() {
 	t.p = best
 }
 
+// fits is how well the model describes these points: reduced χ², drawn towards 1
+// where they are few.
+func (t *along) fits() float64 {
+	return (t.got.SSR + 2) / (float64(t.rows()-len(t.free)) + 2)
+}
+
 // read makes the reading of the model: its gate voltage, corrected by the residuals
 // of the two points around it as far as they stand out of the noise.
 //
 // u is what the scatter of every point does to that, and what the model may be
 // wrong by: at the points, in the gap, and in what was assumed beforehand. The
 // latter is scaled by how well the model describes these very points.
-func (t *along) read() bool {
-	c, w := t.c, t.w
-	a, b := t.vg[t.a], t.vg[t.b]
-	vt := t.p[parVt]
-	tau := wrong(a-vt, b-vt)
+func (t *along) read() (v, u, gm float64) {
 	_, slope := t.gateFor(t.iref, t.at)
 	m, n := t.rows(), len(t.free)
 	if cap(t.r) < m*(n+1) {
@@ -235,9 +312,9 @@ func (t *along) read() bool {
 		t.at7[j] = t.p[k]
 	}
 	if !t.eval(t.at7[:n], t.r, t.jac) {
-		return false
+		return t.at, math.Inf(1), slope
 	}
-	ch := channelOf(&t.p)
+	ch := channelOf(&t.p, t.foot)
 	var dp [parCount]float64
 	top := t.vtop[t.b] + t.p[parTop]
 	if t.f.tied {
@@ -248,22 +325,22 @@ func (t *along) read() bool {
 	for k, par := range t.free {
 		g[k] = -dp[par] / slope
 	}
-	var share [2]float64
-	v := t.at
-	for k, j := range [...]int{t.a, t.b} {
-		x := (b - t.at) / (b - a)
-		if j == t.b {
-			x = 1 - x
+	p := &t.left
+	p.n = 0
+	first := max(0, t.b-krigeSide)
+	for j := first; j < min(len(t.vg), t.b+krigeSide); j++ {
+		if s := t.random(j) / t.slope[j]; t.slope[j] > 0 && s < 0.05 {
+			p.x[p.n], p.r[p.n], p.s[p.n] = t.vg[j], (t.solved[j]-t.i[j])/t.slope[j], s
+			t.place[p.n] = j
+			p.n++
 		}
-		s := t.random(j) / t.slope[j]
-		x *= tau * tau / (tau*tau + s*s)
-		if !(t.slope[j] > 0) {
-			x = 0
-		}
-		share[k] = x
-		v += x * (t.solved[j] - t.i[j]) / t.slope[j]
+	}
+	value, gap := p.at(t.at)
+	v = t.at + value
+	for k := range p.n {
+		j := t.place[k]
 		for f := range t.free {
-			g[f] += x * t.sigma[j] * t.jac[f*m+j] / t.slope[j]
+			g[f] += p.w[k] * t.sigma[j] * t.jac[f*m+j] / t.slope[j]
 		}
 	}
 	var random, model float64
@@ -281,28 +358,22 @@ func (t *along) read() bool {
 			continue
 		}
 		h /= t.sigma[j]
-		if j == t.a || j == t.b {
-			h -= share[j-t.a] / t.slope[j]
+		for k := range p.n {
+			if t.place[k] == j {
+				h -= p.w[k] / t.slope[j]
+			}
 		}
 		s := h * t.random(j)
 		random += s * s
 		s = h * t.model[j]
 		model += s * s
 	}
-	middle := (b - t.at) * (t.at - a) / ((b - a) * (b - a) / 4)
-	model += gapShare * gapShare * tau * tau * math.Max(0, middle)
-	fits := (t.got.SSR + 2) / (float64(m-n) + 2)
-	model *= math.Max(0.1, math.Min(fits, 9))
-	u := math.Sqrt(random + model)
+	model *= math.Max(0.1, math.Min(t.fits(), 9))
+	model = gap*gap + modelPart*model
 	if debugAlong != nil {
 		debugAlong(t)
 	}
-	if !(u < math.Inf(1)) || v < a-3*u || v > b+3*u {
-		return false
-	}
-	_ = w
-	c.v, c.u, c.gm, c.n = v, u, slope, len(t.vg)
-	return true
+	return v, math.Sqrt(random + model), slope
 }
 
 var debugAlong func(*along)

@@ -10,7 +10,6 @@ const (
 	parN             // ln of n
 	parTheta         // 1/V
 	parLambda        // 1/V
-	parKink          // share of the kinked foot, 0 to 1
 	parTop           // V, by which the supply is higher than stated
 	parCount
 )
@@ -21,13 +20,12 @@ type channel struct {
 	vt, half      float64 // V; β/2, A/V²
 	a, inverse    float64 // 2 n kT/q and its inverse, V and 1/V
 	theta, lambda float64 // 1/V
-	kink          float64
-	kinks         bool // the kinked foot has a share, or its share is fitted
+	foot          Foot
 }
 
-func channelOf(p *[parCount]float64) channel {
+func channelOf(p *[parCount]float64, foot Foot) channel {
 	a := 2 * math.Exp(p[parN]) * thermalVoltage
-	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], kink: p[parKink], kinks: p[parKink] > 0}
+	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], foot: foot}
 }
 
 // far is the argument of the knee, in units of a, beyond which it is straight (or
@@ -56,6 +54,24 @@ func (c *channel) smooth(x float64) (s, g, da float64) {
 	return s, g, da
 }
 
+// sharp is the knee a asinh(exp(x/a)/2), its slope, and its derivative by a.
+func (c *channel) sharp(x float64) (s, g, da float64) {
+	z := x * c.inverse
+	switch {
+	case z > far:
+		return x, 1, 0
+	case z < -far:
+		return 0, 0, 0
+	}
+	e := math.Exp(z) / 2
+	root := math.Sqrt(1 + e*e)
+	s, g = c.a*math.Log(e+root), e/root
+	if e < 1e-3 {
+		s = c.a * e * (1 - e*e/6)
+	}
+	return s, g, (s - x*g) * c.inverse
+}
+
 // kinked is the knee that is exponential, (a/2) exp(x/a - 1/2), up to x = a/2 and
 // then x itself, its slope, and its derivative by a.
 func (c *channel) kinked(x float64) (s, g, da float64) {
@@ -72,55 +88,47 @@ func (c *channel) kinked(x float64) (s, g, da float64) {
 }
 
 // ends is what the channel feels at its source and its drain end, V: the current
-// goes with the difference of their squares. The derivatives by the kink are left
-// at 0 where that has no share and is not fitted.
+// goes with the difference of their squares.
 type ends struct {
-	x, s, sx, sa, sk  float64 // V_GS - V_T; source end; its derivatives by V_GS, a and the kink
-	share             float64 // what mobility leaves, 1/(1 + θ s)
-	foot, fx, fa      float64 // the kinked share alone
-	d, dx, dv, da, dk float64 // drain end; its derivatives by V_GS, -V_DS, a and the kink
+	x, s, sx, sa  float64 // V_GS - V_T; source end; its derivatives by V_GS and a
+	share         float64 // what mobility leaves, 1/(1 + θ s)
+	d, dx, dv, da float64 // drain end; its derivatives by V_GS, -V_DS and a
 }
 
 // source evaluates the source end at V_GS.
 func (c *channel) source(e *ends, vgs float64) {
-	x := vgs - c.vt
-	e.x = x
-	e.s, e.sx, e.sa = c.smooth(x)
-	if c.kinks {
-		e.foot, e.fx, e.fa = c.kinked(x)
-		e.sk = e.foot - e.s
-		e.s += c.kink * e.sk
-		e.sx += c.kink * (e.fx - e.sx)
-		e.sa += c.kink * (e.fa - e.sa)
+	e.x = vgs - c.vt
+	switch c.foot {
+	case SmoothFoot:
+		e.s, e.sx, e.sa = c.smooth(e.x)
+	case SharpFoot:
+		e.s, e.sx, e.sa = c.sharp(e.x)
+	default:
+		e.s, e.sx, e.sa = c.kinked(e.x)
 	}
 	e.share = 1 / (1 + c.theta*e.s)
 }
 
-// drain evaluates the drain end at V_DS. Of the kinked share it is what a square law
-// leaves: the source end less V_DS, or nothing.
+// drain evaluates the drain end at V_DS. With the kinked foot it is what a square
+// law leaves: the source end less V_DS, or nothing.
 func (c *channel) drain(e *ends, vds float64) {
-	if x := e.x - vds; vds > pinched*c.a && x < -pinched*c.a {
+	x := e.x - vds
+	switch {
+	case c.foot == KinkedFoot:
+		if e.d = e.s - vds; e.d > 0 {
+			e.dx, e.dv, e.da = e.sx, 1, e.sa
+		} else {
+			e.d, e.dx, e.dv, e.da = 0, 0, 0, 0
+		}
+		return
+	case vds > pinched*c.a && x < -pinched*c.a:
 		e.d, e.dx, e.da = 0, 0, 0
-	} else {
+	case c.foot == SmoothFoot:
 		e.d, e.dx, e.da = c.smooth(x)
+	default:
+		e.d, e.dx, e.da = c.sharp(x)
 	}
 	e.dv = e.dx
-	if !c.kinks {
-		return
-	}
-	k := c.kink
-	e.dk = -e.d
-	e.d *= 1 - k
-	e.dx *= 1 - k
-	e.dv *= 1 - k
-	e.da *= 1 - k
-	if left := e.foot - vds; left >= 0 {
-		e.dk += left
-		e.d += k * left
-		e.dx += k * e.fx
-		e.dv += k
-		e.da += k * e.fa
-	}
 }
 
 // current is I_D [A] at the ends and V_DS [V], and its derivatives by V_GS and V_DS,
@@ -146,7 +154,6 @@ func (c *channel) partials(e *ends, vds, i, gm, gds, scale float64, dp *[parCoun
 	dp[parN] = kl * (2*(e.s*e.sa-e.d*e.da) - bend*e.sa) * c.a
 	dp[parTheta] = -i * scale * e.s * e.share
 	dp[parLambda] = k * q * vds
-	dp[parKink] = kl * (2*(e.s*e.sk-e.d*e.dk) - bend*e.sk)
 	dp[parTop] = gds * scale
 }
 

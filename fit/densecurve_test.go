@@ -12,6 +12,7 @@ import (
 type denseCurve struct {
 	file, family, circuit, device string
 	setup                         Setup
+	even                          bool                // at even steps, else at those that a line between them needs
 	v, i                          []float64           // V ascending, A
 	truth                         map[float64]float64 // A -> V with the device's own sign; absent: never reached
 }
@@ -19,27 +20,38 @@ type denseCurve struct {
 // reaches reports whether the device carries that current in its circuit.
 func (d *denseCurve) reaches(i float64) bool { _, ok := d.truth[i]; return ok }
 
-// denseCurves reads all dense noise-free curves.
+// denseCurves reads all dense noise-free curves, those of held-back devices
+// included: nothing may be chosen by what is found on these.
 func denseCurves(t *testing.T) []*denseCurve {
 	t.Helper()
 	var all []*denseCurve
-	for _, o := range outsideCurves(t) {
-		if o.step == "dense" && o.meter == "none" {
-			all = append(all, o.dense())
+	held := 0
+	for _, o := range readOutside(t, func(get func(string) string) bool {
+		return get("meter") == "none" && (get("step") == "dense" || get("step") == "adaptive")
+	}) {
+		d := o.dense()
+		if !d.even {
+			d.family += " held"
+			held++
 		}
+		all = append(all, d)
 	}
-	if len(all) < 30 {
-		t.Fatalf("%d dense curves only", len(all))
+	if held < 40 || len(all) < held+30 {
+		t.Fatalf("%d dense curves only, %d of them held back", len(all), held)
 	}
 	return all
 }
 
 func (o *outsideCurve) dense() *denseCurve {
-	d := &denseCurve{file: o.file, device: o.device, setup: o.setup, truth: map[float64]float64{}}
-	d.family = "level " + o.device[1:2]
-	d.circuit = strings.Split(o.file, "_")[1]
-	if d.circuit == "load10" {
-		d.circuit = "load"
+	d := &denseCurve{file: o.file, family: o.family, device: o.device, setup: o.setup, even: o.step == "dense", truth: map[float64]float64{}}
+	d.circuit = o.circuit
+	switch d.setup.Circuit {
+	case Fixed:
+		d.circuit = "fixed " + si(math.Abs(d.setup.Vds), "V")
+	case Load:
+		if d.setup.RL > 500 {
+			d.circuit = "load1k"
+		}
 	}
 	if !o.isDepletion {
 		d.setup.OffV = 0
@@ -65,7 +77,8 @@ const (
 )
 
 // at is the drain current at gate voltage v by the dense curve: a straight line in
-// ln I between neighbours. Where the slopes on either side say that there is a
+// ln I between neighbours, for which the points of held-back curves were picked.
+// Where the others' slopes on either side say that there is a
 // corner in between (level 3 has one at its knee), the lines on either side go on
 // to where they meet.
 //
@@ -83,7 +96,7 @@ func (d *denseCurve) at(v float64) float64 {
 	slope := func(k int) float64 { return math.Log(d.i[k]/d.i[k-1]) / (d.v[k] - d.v[k-1]) }
 	own := slope(k)
 	y := math.Log(d.i[k-1]) + own*(v-d.v[k-1])
-	if k >= 2 && k+1 < len(d.v) && d.i[k-2] >= denseLeast {
+	if d.even && k >= 2 && k+1 < len(d.v) && d.i[k-2] >= denseLeast {
 		left, right := slope(k-1), slope(k+1)
 		if (right-left)*h/4 > denseCorner*own && left < own && own < right {
 			before := math.Log(d.i[k-1]) + left*(v-d.v[k-1])
@@ -95,14 +108,14 @@ func (d *denseCurve) at(v float64) float64 {
 }
 
 // span is where a sweep begins and ends, V: from where the part is off (a little
-// below 10 µA, or where the dense curve begins) to well above 250 mA where the
+// way below 10 µA, or where the dense curve begins) to well above 250 mA where the
 // circuit allows.
 func (d *denseCurve) span() (from, to float64) {
 	gate := func(i float64) float64 {
 		k, _ := slices.BinarySearch(d.i, i)
 		return d.v[min(k, len(d.v)-1)]
 	}
-	from = math.Max(d.v[0], gate(10e-6)-0.2)
+	from = math.Max(d.v[0], gate(10e-6)-0.4)
 	to = math.Min(gate(250e-3)+testTopOver, gate(testMaxId))
 	return from, math.Min(to, d.v[len(d.v)-1])
 }
@@ -111,9 +124,9 @@ func (d *denseCurve) span() (from, to float64) {
 // wherever a meter would show the current: the hand-turned files hold points of
 // the same simulation at other gate voltages. Above 0.5 A, past every current
 // that is asked for, where a load line comes to its end and the slope with it, it
-// is the current that lies within a third of the finest meters' noise.
+// is the current that lies within half of the finest meters' noise.
 func TestDenseInterpolation(t *testing.T) {
-	const least, limit, strong, share = 1e-6, 0.05e-3, 0.5, 1e-4
+	const least, limit, strong, share = 1e-6, 0.05e-3, 0.5, 1.5e-4
 	dense := map[string]*denseCurve{}
 	for _, d := range denseCurves(t) {
 		dense[strings.TrimSuffix(d.file, "_dense.csv")] = d

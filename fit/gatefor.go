@@ -6,7 +6,7 @@ import "math"
 // on the logarithm, halving where a step leaves the bracket that the points give.
 // NaN where the model does not reach the current there.
 func (t *transfer) gateFor(i, guess float64) (v, slope float64) {
-	c := channelOf(&t.p)
+	c := channelOf(&t.p, t.foot)
 	var dp [parCount]float64
 	n := len(t.vg)
 	lo, hi := t.vg[0]-0.5, t.vg[n-1]+0.5

@@ -11,13 +11,8 @@ import "math"
 // In strong inversion it is the square law of Shichman and Hodges (IEEE J.
 // Solid-State Circuits SC-3, 1968, 285-289; from memory), below the threshold
 // the exponential of Enz, Krummenacher and Vittoz (Analog Integrated Circuits
-// and Signal Processing 8, 1995, 83-114; from memory). The share Kink of s(x) is
-// that of a foot whose exponential meets the straight line at x = N U_T, as in
-// the level-3 model (Vladimirescu and Liu, UCB/ERL M80/7, 1980; from memory):
-//
-//	(a/2) exp(x/a - 1/2) below, x above
-//
-// Real knees lie between. n-channel signs.
+// and Signal Processing 8, 1995, 83-114; from memory). Two more feet stand in for
+// s(x) where knees are sharper, see [Foot]. n-channel signs.
 //
 // Checked: TestModelClosedForm against values of both laws worked by hand and
 // confirmed by a circuit simulator.
@@ -27,9 +22,22 @@ type Model struct {
 	N      float64 // knee width, subthreshold slope factor
 	Theta  float64 // 1/V
 	Lambda float64 // 1/V
-	Kink   float64 // share of the kinked foot, 0 (smooth) to 1
+	Foot   Foot    // shape of the knee; the zero value is the smooth one
 	Rs     float64 // ohm, in the source lead
 }
+
+// Foot is how the channel goes over from its exponential foot into strong
+// inversion, by the slope ds/dx that goes with s/a.
+type Foot uint8
+
+// The feet. Kinked: a square law from x = a/2 on, as in the level-3 model
+// (Vladimirescu and Liu, UCB/ERL M80/7, 1980; from memory). Sharp lies between, an
+// interpolation of our own.
+const (
+	SmoothFoot Foot = iota // slope 1 - exp(-s/a): s = a ln(1 + exp(x/a))
+	SharpFoot              // slope tanh(s/a): s = a asinh(exp(x/a)/2)
+	KinkedFoot             // slope s/a up to 1/2, then 1: s = (a/2) exp(x/a - 1/2), then x
+)
 
 // thermalVoltage is kT/q at 300 K, in V (CODATA 2018 k and q, both exact).
 const thermalVoltage = 1.380649e-23 * 300 / 1.602176634e-19
@@ -49,5 +57,5 @@ func (m Model) Solve(vg, vtop, rl float64) float64 {
 }
 
 func (m Model) channel() channel {
-	return channelOf(&[parCount]float64{m.Vt, math.Log(m.Beta), math.Log(m.N), m.Theta, m.Lambda, m.Kink, 0})
+	return channelOf(&[parCount]float64{m.Vt, math.Log(m.Beta), math.Log(m.N), m.Theta, m.Lambda, 0}, m.Foot)
 }

@@ -4,6 +4,7 @@ import (
 	"cmp"
 	"fmt"
 	"hash/fnv"
+	"maps"
 	"math"
 	"math/rand/v2"
 	"os"
@@ -26,14 +27,14 @@ import (
 // testCell is one cell.
 type testCell struct {
 	family  string  // level of the simulator's model, with "held" when held back
-	circuit string  // "load", "load1k", "diode", "fixed10", "fixed28", "fixed0v1"
+	circuit string  // "load", "load1k", "diode", "fixed 10 V", "fixed 28 V", "fixed 100 mV"
 	counts  int     // of the meters: 6000, 20000
 	step    float64 // V
 	current float64 // A
 }
 
 func (c testCell) String() string {
-	return fmt.Sprintf("%-14s %-8s %5d counts %3.0f mV %6s", c.family, c.circuit, c.counts, 1e3*c.step, amps(c.current))
+	return fmt.Sprintf("%-12s %-12s %5d counts %3.0f mV %6s", c.family, c.circuit, c.counts, 1e3*c.step, amps(c.current))
 }
 
 // bar is the greatest rms error of the cell, V: 1 mV at 60 mV steps with 20,000
@@ -57,6 +58,7 @@ type cellResult struct {
 	honesty
 	none  int                  // draws without a value
 	by    map[string][]float64 // errors by device, V
+	noise map[string]float64   // V, by device: what the noise of one reading at the current is worth at the gate
 	dealt int                  // draws
 }
 
@@ -82,6 +84,10 @@ func (r *cellResult) bias() float64 {
 func (r *cellResult) worst() float64 {
 	return slices.MaxFunc(r.errors, func(a, b float64) int { return cmp.Compare(math.Abs(a), math.Abs(b)) })
 }
+
+// oneReading is the rms of that noise over the devices, V: where it is above the
+// bar only an average over many points could meet it.
+func (r *cellResult) oneReading() float64 { return rms(slices.Collect(maps.Values(r.noise))) }
 
 // worstDevice is the device of the greatest rms error.
 func (r *cellResult) worstDevice() (name string, e float64) {
@@ -124,8 +130,8 @@ func (r *cellResult) line(m testMode) string {
 	if miss := r.missed(m); len(miss) > 0 {
 		verdict = "misses " + strings.Join(miss, ", ")
 	}
-	return fmt.Sprintf("%s: n %3d none %2d rms %6.2f bias %6.2f worst %7.2f mV (%s %.2f) |e|/u %.2f within 2u %5.1f %% %s", r.testCell,
-		len(r.errors), r.none, 1e3*r.rms(), 1e3*r.bias(), 1e3*r.worst(), d, 1e3*e, r.median(), 100*r.within(2), verdict)
+	return fmt.Sprintf("%s: n %3d none %2d rms %6.2f bias %6.2f worst %7.2f mV (%s %.2f; one reading %.2f) |e|/u %.2f within 2u %5.1f %% %s", r.testCell,
+		len(r.errors), r.none, 1e3*r.rms(), 1e3*r.bias(), 1e3*r.worst(), d, 1e3*e, 1e3*r.oneReading(), r.median(), 100*r.within(2), verdict)
 }
 
 // testCurrents are the currents of the test set, A: thresholds at 1 and 10 mA,
@@ -258,6 +264,27 @@ func (d *denseCurve) draw(r *rand.Rand, b testBench, m testMode, step float64) (
 	return c, s
 }
 
+// readingNoise is the noise of one reading of gate and current together, V at
+// the gate, where the device carries current i.
+func (d *denseCurve) readingNoise(b testBench, i float64) float64 {
+	m := b.meters()
+	v := math.Abs(d.truth[i])
+	if d.setup.Depletion {
+		v = d.truth[i]
+	}
+	reading := func(m simMeter, x float64) float64 {
+		q := m.resolution(x)
+		return math.Hypot(math.Hypot(m.share*x, m.volts), q*math.Hypot(m.digit, 1/math.Sqrt(12)))
+	}
+	relative := reading(m.current, i) / i
+	if rl := d.setup.RL; d.setup.Circuit == Load {
+		relative = reading(m.load, i*rl) / (i * rl)
+	}
+	const h = 5e-3
+	slope := (d.at(v+h) - d.at(v-h)) / (2 * h)
+	return math.Hypot(reading(m.gate, v), relative*i/slope)
+}
+
 // runTestSet deals draws to every cell that the filter wants, in turn to the
 // devices of the cell, and gives the results in a fixed order. The same cell
 // gets the same sweeps whatever the filter.
@@ -282,7 +309,7 @@ func runTestSet(t *testing.T, mode testMode, filter func(testCell) bool, draws i
 					for h, i := range pair {
 						c := testCell{k[0], k[1], b.counts, step, i}
 						if filter(c) && slices.ContainsFunc(curves, func(d *denseCurve) bool { return d.reaches(i) }) {
-							cells[j][h] = &cellResult{testCell: c, by: map[string][]float64{}}
+							cells[j][h] = &cellResult{testCell: c, by: map[string][]float64{}, noise: map[string]float64{}}
 							all = append(all, cells[j][h])
 						}
 					}
@@ -331,6 +358,7 @@ func dealTo(cells [2][2]*cellResult, curves []*denseCurve, b testBench, mode tes
 				for h, q := range []Quantity{r.Vgsth, r.VgsIdle} {
 					if wanted(d, h) {
 						cells[j][h].take(d, q, mode)
+						cells[j][h].noise[d.device] = d.readingNoise(b, cells[j][h].current)
 					}
 				}
 			}
@@ -429,7 +457,7 @@ func logTestSet(t *testing.T, results []*cellResult, mode testMode) {
 		if worst[g] != nil {
 			w = fmt.Sprintf("worst rms %.2f mV (%s)", 1e3*worst[g].rms(), worst[g].circuit)
 		}
-		t.Logf("  %-14s %5d counts %3.0f mV %6s: %d cells, missing %v, %s", g.family, g.counts, 1e3*g.step, amps(g.amps), size[g], names[g], w)
+		t.Logf("  %-12s %5d counts %3.0f mV %6s: %d cells, missing %v, %s", g.family, g.counts, 1e3*g.step, amps(g.amps), size[g], names[g], w)
 	}
 	t.Logf("%d cells; missing a bar: %v", len(results), missed)
 }

@@ -2,7 +2,6 @@ package fit
 
 import (
 	"math"
-	"slices"
 
 	"gatesill/fit/lsq"
 )
@@ -13,6 +12,7 @@ import (
 // has one more residual, (p - mean)/sd.
 type transfer struct {
 	f                  feed
+	foot               Foot
 	vg, vtop, i, sigma []float64           // V, V, A, A; one element a point
 	p                  [parCount]float64   // the last parameters evaluated, and the fixed ones
 	free               []int               // parameters that are fitted
@@ -28,11 +28,11 @@ type transfer struct {
 }
 
 // bounds of the parameters: what no transistor and no knee goes beyond.
-var parLower = [parCount]float64{math.Inf(-1), -20, -3, -0.5, -0.05, 0, -1} // n from 0.05
-var parUpper = [parCount]float64{math.Inf(1), 12, 3, 5, 0.5, 1, 1}          // n to 20
+var parLower = [parCount]float64{math.Inf(-1), -20, -3, -0.5, -0.05, -1} // n from 0.05
+var parUpper = [parCount]float64{math.Inf(1), 12, 3, 5, 0.5, 1}          // n to 20
 
 // parSteps are steps of the parameters that no longer matter.
-var parSteps = [parCount]float64{1e-8, 1e-7, 1e-5, 1e-6, 1e-6, 1e-4, 1e-5}
+var parSteps = [parCount]float64{1e-8, 1e-7, 1e-5, 1e-6, 1e-6, 1e-5}
 
 // size makes room for n points.
 func (t *transfer) size(n int) {
@@ -58,8 +58,7 @@ func (t *transfer) eval(x, r, jac []float64) bool {
 		by[k] = x[k] - t.last[k]
 		t.last[k] = x[k]
 	}
-	c := channelOf(&p)
-	c.kinks = c.kinks || slices.Contains(t.free, parKink)
+	c := channelOf(&p, t.foot)
 	res := t.f.source + t.f.drain
 	m := len(r)
 	n := len(t.vg)

@@ -10,26 +10,49 @@ import (
 // whole is the transfer model laid through a whole curve.
 type whole struct {
 	transfer
-	from      []int   // index of each point in work.pts
-	resistive bool    // the channel is a resistor at most points
-	noise     float64 // V, scatter of points about the curve, beyond what is stated of them
-	misfit    float64 // reduced χ², floors included
-	got       lsq.Fit
+	from   []int   // index of each point in work.pts
+	noise  float64 // V, scatter of points about the curve, beyond what is stated of them
+	apart  []bool  // points so far off the curve that they do not count
+	scale  []float64
+	misfit float64 // reduced χ², floors included, of the points that count
+	got    lsq.Fit
 }
 
-// The floors of the weights: what the model itself is wrong by.
+// The floors of the weights: what the model itself is wrong by. Without them the few
+// points below the threshold, whose noise is least, would decide.
 const (
 	modelShare = 0.005 // of the current
 	modelOfTop = 0.001 // of the greatest current
 )
 
-// usualNoise is the scatter of a handheld's gate reading, V (common practice, no
-// source).
-const usualNoise = 0.4e-3
+const (
+	// usualNoise is the scatter of a handheld's gate reading, V (common practice, no
+	// source).
+	usualNoise = 0.4e-3
+	// leastStrong is the fewest points that carry strongShare of the greatest current
+	// or more.
+	leastStrong = 4
+	strongShare = 0.01
+	// weakTheta holds θ only where the points say nothing of it, 1/V; weakLambda
+	// likewise.
+	weakTheta  = 1.0
+	weakLambda = 0.015
+	// wellSaturated is how many times the overdrive the drain voltage must be for a
+	// point behind a load resistor that takes most of the supply to count (judgement).
+	wellSaturated = 2
+	// farOff is how many times the median residual a point may lie off the curve, and
+	// leastOff the least residual, in floors, that is called off (judgement).
+	farOff   = 7
+	leastOff = 4
+	// mostOff is the share of the points that may be so.
+	mostOff = 0.2
+	// plainMisfit is the reduced χ² above which the model does not describe a curve
+	// (judgement: with the floors 0.03 to 0.1 is normal).
+	plainMisfit = 4
+)
 
-// wholeOptions stop a fit when a further step would not move the threshold by
-// 10 nV.
-var wholeOptions = lsq.Options{MaxEvals: 200}
+// wholeOptions stop a fit when a further step would not matter (parSteps).
+var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
 
 // whole is the model laid through the curve, nil where there is none to be had.
 func (w *work) whole() *whole {
@@ -44,55 +67,113 @@ func (w *work) whole() *whole {
 
 // layWhole lays the model through the curve; false where the points do not
 // allow it.
+//
+// Uses the points that the model is meant for (see top). Weights: 1/σ² of the
+// points' scatter, taken to volts at the gate and by the slope to a current, and of
+// the floors; set from the readings first and then from the curve fitted. Points
+// that stand far off the curve are given no weight, so that no single bad one moves
+// the threshold.
+//
+// Parameters: V_T, β, n, θ, and λ in the load circuit. n is the width of the knee
+// here, no slope factor. Resistance in the source lead goes into θ.
+//
+// Source: equation, see [Model]; V_T by whole-curve fits in all regions, A.
+// Ortiz-Conde et al., Microelectronics Reliability 42 (2002) 583–596 (section from
+// memory); leaving out by multiples of the median absolute residual, common
+// practice. Checked: TestWholeCurve, TestOutsideThresholds, TestOneBadPoint.
 func (w *work) layWhole() (*whole, bool) {
 	t := &whole{}
-	if !t.choose(w) {
+	if w.s.Circuit == NoCircuit || !t.choose(w, math.NaN()) || !t.start(w.resistive()) {
 		return nil, false
 	}
-	if !t.start(t.resistive) {
-		return nil, false
-	}
-	t.free = []int{parVt, parBeta, parN, parTheta}
-	if w.s.Circuit == Load && t.f.drain > 0 {
-		t.free = append(t.free, parLambda)
-		t.mean[parLambda], t.sd[parLambda] = 0.01, 0.03
+	if t.f.drain > 0 && w.s.Circuit == Load {
+		t.choose(w, t.p[parVt])
 	}
 	strong := 0
+	top := slices.Max(t.i)
 	for _, i := range t.i {
-		if i > 0.01*slices.Max(t.i) {
+		if i > strongShare*top {
 			strong++
 		}
 	}
-	if strong <= len(t.free) {
+	if strong < leastStrong {
 		return nil, false
 	}
+	t.free = []int{parVt, parBeta, parN, parTheta}
+	t.mean[parTheta], t.sd[parTheta] = usualTheta, weakTheta
+	if w.s.Circuit == Load && t.f.drain > 0 && strong >= 2*leastStrong {
+		t.free = append(t.free, parLambda)
+		t.mean[parLambda], t.sd[parLambda] = 0.01, weakLambda
+	}
 	for j := range t.slope {
-		t.slope[j] = secant(t.vg, t.i, j)
-		t.solved[j] = t.i[j]
+		t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
 	}
 	t.noise = usualNoise
-	for range 2 {
+	t.apart = make([]bool, len(t.vg))
+	for range 3 {
 		t.weigh(w)
 		t.got = t.fit(wholeOptions)
-		if !t.got.Reason.Converged() {
+		if !t.got.Reason.Converged() && t.got.Reason != lsq.TooManyEvaluations {
 			return nil, false
 		}
 		t.noise = t.scatter(w)
+		if !t.setApart() {
+			break
+		}
 	}
 	t.misfit = t.got.Scale()
 	return t, true
 }
 
-// choose takes the points that the model can describe: those with a current and a
-// known circuit; in the load circuit those with less than half of the supply
-// across the resistor, for the model's channel is not a good resistor.
-func (t *whole) choose(w *work) bool {
-	t.size(len(w.pts))
+// setApart finds the points that stand far off the curve, by the median of all
+// residuals; it reports whether they are others than before.
+func (t *whole) setApart() (changed bool) {
+	t.scale = t.scale[:0]
+	for j := range t.vg {
+		t.scale = append(t.scale, math.Abs(t.residual(j)))
+	}
+	limit := math.Max(farOff*median(t.scale), leastOff)
 	n := 0
-	small := 0
+	for j := range t.vg {
+		off := math.Abs(t.residual(j)) > limit
+		if off {
+			n++
+		}
+		changed = changed || off != t.apart[j]
+	}
+	if float64(n) > mostOff*float64(len(t.vg)) {
+		return false
+	}
+	for j := range t.vg {
+		t.apart[j] = math.Abs(t.residual(j)) > limit
+	}
+	return changed
+}
+
+// residual of point j, in units of what it may be off.
+func (t *whole) residual(j int) float64 {
+	s := t.sigma[j]
+	if t.apart[j] {
+		s /= noWeight
+	}
+	return (t.solved[j] - t.i[j]) / s
+}
+
+// noWeight is the factor to sigma that takes a point out of a fit.
+const noWeight = 1e6
+
+// choose takes the points that the model can describe: see top; and once the
+// threshold is known about, all whose drain voltage is well above the overdrive.
+func (t *whole) choose(w *work, vt float64) bool {
+	t.size(len(w.pts))
+	t.from = t.from[:0]
+	n := 0
 	for j := range w.pts {
 		p := &w.pts[j]
 		top, ok := w.top(p)
+		if !ok && p.vds > wellSaturated*(p.vg-vt) {
+			top, ok = w.supplyOf(p)
+		}
 		if !ok {
 			continue
 		}
@@ -101,13 +182,8 @@ func (t *whole) choose(w *work) bool {
 		n++
 	}
 	t.size(n)
-	if n == 0 {
-		return false
-	}
 	t.f = w.feed()
-	t.resistive = w.resistive()
-	_ = small
-	return true
+	return n > 0
 }
 
 // feed is the circuit as far as it is known.
@@ -136,7 +212,8 @@ func (w *work) feed() (f feed) {
 const manyVolts = 1000
 
 // top is the voltage above the circuit's drain resistance at point p; false for a
-// point that the model is not meant for.
+// point that the model is not meant for: no drain voltage known, or more than half
+// of the supply across R_L, for the model's channel is no good resistor.
 func (w *work) top(p *point) (float64, bool) {
 	switch w.s.Circuit {
 	case Diode:
@@ -228,8 +305,16 @@ func (t *whole) weigh(w *work) {
 	for j := range t.sigma {
 		p := &w.pts[t.from[j]]
 		random := rss(p.u, t.slope[j]*rss(t.noise, p.ux))
-		t.sigma[j] = rss(random, rss(modelShare*t.solved[j], modelOfTop*top))
+		t.sigma[j] = rss(random, t.floor(j, top))
+		if t.apart[j] {
+			t.sigma[j] *= noWeight
+		}
 	}
+}
+
+// floor is what the model itself is wrong by at point j, A.
+func (t *whole) floor(j int, top float64) float64 {
+	return rss(modelShare*t.solved[j], modelOfTop*top)
 }
 
 // scatter is the standard deviation of the points about the curve, in volts at the
@@ -240,7 +325,7 @@ func (t *whole) scatter(w *work) float64 {
 	var sum, known float64
 	n := 0
 	for j, i := range t.i {
-		if i < 0.01*top {
+		if i < strongShare*top || t.apart[j] {
 			continue
 		}
 		p := &w.pts[t.from[j]]

@@ -8,11 +8,11 @@ import (
 
 // Fit is where a fit ended.
 type Fit struct {
-	P          []float64 // parameters, N; the best point reached; nil only for BadInput without a usable start
+	P          []float64 // parameters, N: the best point reached; the start, or NaN, where nothing was begun
 	SSR        float64   // sum of the squared residuals there, dimensionless; NaN where the model is not defined
 	M, N       int       // residuals, parameters
 	Evals      int       // calls of Eval
-	Iterations int       // accepted steps tried for
+	Iterations int       // steps accepted
 	Reason     Reason
 	// AtBound marks parameters that lie on one of their bounds. They are taken as
 	// fixed there: they have no covariance, and count as no parameter in DOF.
@@ -35,7 +35,8 @@ func (f *Fit) DOF() int {
 // at a bound: the covariance of the parameters when the standard deviations used
 // as weights are true. Unit: that of parameter i times that of parameter j. NaN
 // for a parameter at a bound, and for all where the readings do not tell the
-// parameters apart or there is no fit.
+// parameters apart or there is no fit. Where Reason is not one of a minimum it is
+// that of the point reached, and worth no more than that point.
 func (f *Fit) Cov(i, j int) float64 {
 	if f.cov == nil || i < 0 || j < 0 || i >= f.N || j >= f.N {
 		return math.NaN()
@@ -94,50 +95,6 @@ func noFit(pr Problem, start []float64, why Reason) Fit {
 	return f
 }
 
-// check looks for what no fit can begin with.
-func (pr *Problem) check(start []float64, o Options) Reason {
-	n := pr.N
-	if n <= 0 || pr.M < 0 || pr.Eval == nil || len(start) != n ||
-		pr.Lower != nil && len(pr.Lower) != n || pr.Upper != nil && len(pr.Upper) != n ||
-		o.Step != nil && len(o.Step) != n {
-		return BadInput
-	}
-	held := 0
-	for j, v := range start {
-		lo, hi := pr.bounds(j)
-		if !finite(v) || !(lo <= hi) || math.IsInf(lo, 1) || math.IsInf(hi, -1) {
-			return BadInput
-		}
-		if lo == hi {
-			held++
-		}
-	}
-	if pr.M < n-held || pr.M == 0 {
-		return TooFewPoints
-	}
-	return ""
-}
-
-// bounds are those of parameter j.
-func (pr *Problem) bounds(j int) (lo, hi float64) {
-	lo, hi = math.Inf(-1), math.Inf(1)
-	if pr.Lower != nil {
-		lo = pr.Lower[j]
-	}
-	if pr.Upper != nil {
-		hi = pr.Upper[j]
-	}
-	return lo, hi
-}
-
-// clamp moves p into the bounds.
-func (pr *Problem) clamp(p []float64) {
-	for j, v := range p {
-		lo, hi := pr.bounds(j)
-		p[j] = math.Min(math.Max(v, lo), hi)
-	}
-}
-
 // fit closes a run.
 func (c *run) fit(why Reason) Fit {
 	n := c.pr.N
@@ -151,7 +108,7 @@ func (c *run) fit(why Reason) Fit {
 	if why == NotDefined || why == TooFewPoints {
 		return f
 	}
-	if !c.told() {
+	if !c.invert() { // the readings do not tell the parameters apart
 		if why.Converged() {
 			f.Reason = RankDeficient
 		}
@@ -168,28 +125,6 @@ func (c *run) fit(why Reason) Fit {
 		}
 	}
 	return f
-}
-
-// told says whether the readings tell the free parameters apart: no column of
-// the Jacobian may lie in the space of the others to within rounding. It leaves
-// R⁻¹ in top.
-func (c *run) told() bool {
-	if !c.invert() {
-		return false
-	}
-	nf := len(c.free)
-	most := 1 / (10 * epsilon * float64(max(c.pr.M, c.pr.N)))
-	for k, j := range c.free {
-		sum := 0.0
-		for i := k; i < nf; i++ {
-			sum += c.top[i*nf+k] * c.top[i*nf+k]
-		}
-		// The inverse sine of the angle between column j and the others.
-		if !(math.Sqrt(sum)*c.norm[j] < most) {
-			return false
-		}
-	}
-	return true
 }
 
 // covariance writes (JᵀJ)⁻¹ = R⁻¹R⁻ᵀ of the free parameters.

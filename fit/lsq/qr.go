@@ -27,29 +27,37 @@ func add(c float64, a, b []float64) {
 	}
 }
 
+// dependent is the sine of the angle to the others below which a column of the
+// Jacobian is taken to lie in their space: what rounding alone makes of zero.
+func dependent(m, n int) float64 { return 10 * epsilon * float64(max(m, n)) }
+
 // factor takes the free columns of the Jacobian apart, J = QR, by Householder
 // reflections, and turns the residuals along. Both are used up. It leaves R in
-// s.r (nf by nf, column by column), Qᵀr in s.qtr and the column norms of J in
-// s.norm (all in the order of s.free).
+// s.r (nf by nf, column by column) and Qᵀr in s.qtr, in the order of s.free, in
+// which it moves columns that depend on those before them to the end: there R has
+// zeros on its diagonal, and Qᵀr is zero too.
 func (s *Solver) factor(m int) {
 	nf := len(s.free)
 	s.qtr = s.qtr[:nf]
-	for k, j := range s.free {
-		col := s.jac[j*m : (j+1)*m]
-		rk := s.r[k*nf : (k+1)*nf]
-		copy(rk[:k], col)
-		v := col[k:]
+	clear(s.qtr)
+	least := dependent(m, nf)
+	rank := 0
+	for range nf {
+		k, j := rank, s.free[rank]
+		v := s.jac[j*m+k : (j+1)*m]
 		h := math.Sqrt(dot(v, v))
-		if h == 0 {
-			rk[k], s.qtr[k] = 0, s.res[k]
+		if h <= least*s.norm[j] {
+			copy(s.free[k:], s.free[k+1:])
+			s.free[nf-1] = j
 			continue
 		}
+		rank++
 		x := v[0]
 		if x > 0 {
-			rk[k] = -h
+			s.diag[k] = -h
 			v[0] = x + h
 		} else {
-			rk[k] = h
+			s.diag[k] = h
 			v[0] = x - h
 		}
 		b := -1 / (h * (h + math.Abs(x)))
@@ -60,6 +68,14 @@ func (s *Solver) factor(m int) {
 		c := s.res[k:m]
 		add(b*dot(v, c), v, c)
 		s.qtr[k] = c[0]
+	}
+	for k, j := range s.free {
+		rk := s.r[k*nf : (k+1)*nf]
+		clear(rk)
+		copy(rk[:min(k, rank)], s.jac[j*m:])
+		if k < rank {
+			rk[k] = s.diag[k]
+		}
 	}
 }
 

@@ -165,14 +165,8 @@ func (c *run) iterate() Reason {
 		if !c.damping() {
 			return c.end()
 		}
-		expected, moved, stopped := c.trial()
+		expected, moved := c.trial()
 		if !moved || !(expected > 0) {
-			// A parameter on its bound that should leave it may be carried back by
-			// the others; a shorter step is steeper and takes it inside.
-			if stopped && c.reach > epsilon*epsilon*c.part {
-				c.reach *= shrinkFar
-				continue
-			}
 			return c.end()
 		}
 		length := c.length()
@@ -204,7 +198,7 @@ func (c *run) iterate() Reason {
 			continue
 		}
 		switch {
-		case gain >= goodGain || c.mu == 0 && gain >= badGain:
+		case gain >= goodGain || c.mu <= singular && gain >= badGain:
 			c.reach = grow * length
 		case gain < badGain:
 			c.reach = shrink * math.Min(c.reach, length)

@@ -2,6 +2,10 @@ package lsq
 
 import "math"
 
+// singular is the damping that makes a singular problem regular: small beside 1,
+// the size of the scaled columns, while its root still leaves half the digits.
+const singular = epsilon
+
 // scale is D_jj, 1 for a column that never was anything but zero.
 func (s *Solver) scale(j int) float64 {
 	if s.d[j] == 0 {
@@ -32,15 +36,19 @@ func (c *run) damping() bool {
 	for k := range c.free {
 		c.sel = append(c.sel, k)
 	}
-	low := 0.0
+	low, least := 0.0, 0.0
 	length, fall, ok := c.whole(0)
+	if !ok { // singular: as little damping as gives an answer
+		low, least = singular, singular
+		length, fall, ok = c.whole(singular)
+	}
 	if ok {
 		if length <= 1.1*c.reach {
-			c.mu = 0
+			c.mu = least
 			return true
 		}
 		if v := (length - c.reach) / (c.reach * fall); finite(v) {
-			low = v
+			low = math.Max(low, v)
 		}
 	}
 	high := 0.0
@@ -128,9 +136,9 @@ func (c *run) release() {
 
 // trial makes the next point from the damped step in c.z. A parameter that would
 // leave its bounds stops there, and the rest is solved again. It gives the fall of S
-// that the linearised problem expects, -(Rδ)·(2 Qᵀr + Rδ), whether any parameter
-// moves, and whether one was stopped.
-func (c *run) trial() (expected float64, moved, stopped bool) {
+// that the linearised problem expects, -(Rδ)·(2 Qᵀr + Rδ), and whether any
+// parameter moves.
+func (c *run) trial() (expected float64, moved bool) {
 	nf := len(c.free)
 	step := c.step[:nf]
 	clear(step)
@@ -141,7 +149,6 @@ func (c *run) trial() (expected float64, moved, stopped bool) {
 	}
 	copy(c.next, c.p)
 	for c.advance(step) {
-		stopped = true
 		if len(c.sel) == 0 {
 			break
 		}
@@ -173,7 +180,7 @@ func (c *run) trial() (expected float64, moved, stopped bool) {
 	for i, x := range v {
 		expected -= x * (2*c.qtr[i] + x)
 	}
-	return expected, moved, stopped
+	return expected, moved
 }
 
 // advance goes from step towards the solution z of the columns sel, up to the
