@@ -61,16 +61,19 @@ func (w *work) cleaned() Cleaned {
 func (w *work) clean() {
 	w.dropStuck()
 	w.dropGateSpikes()
-	w.dropContradictions()
-	w.mergeEqual()
-	w.dropSpikes()
+	w.survey()
+	w.findJumps()
+	w.mergeEqual(true)
+	if !w.falling {
+		w.dropFaults()
+		w.dropLast()
+	}
+	w.mergeEqual(false)
 	for j := range w.pts {
 		p := &w.pts[j]
 		p.vds = w.drainVoltage(p)
-		if p.i > 0 {
-			p.rt, p.ln = math.Sqrt(p.i), math.Log(p.i)
-		}
 	}
+	w.tellDisputes()
 	w.tellLeftOut()
 }
 
@@ -121,32 +124,52 @@ func (w *work) tellLeftOut() {
 	}
 }
 
-// mergeEqual averages points of exactly one gate voltage.
-func (w *work) mergeEqual() {
+// mergeEqual averages points of exactly one gate voltage; with alike only those
+// of them whose currents agree.
+func (w *work) mergeEqual(alike bool) {
+	if !w.ties {
+		return
+	}
 	out := w.pts[:0]
 	for j := 0; j < len(w.pts); {
 		e := j + 1
-		for e < len(w.pts) && w.pts[e].vg == w.pts[j].vg {
+		for e < len(w.pts) && w.pts[e].vg == w.pts[j].vg && !(alike && !w.alike(&w.pts[j], &w.pts[e])) {
 			e++
 		}
 		p := w.pts[j]
 		if n := float64(e - j); n > 1 {
-			w.ties = true
 			sum, uu := 0.0, 0.0
 			for _, v := range w.pts[j:e] {
 				sum += v.i
 				uu += v.u * v.u
+				p.room = max(p.room, v.room)
 				p.k = min(p.k, v.k)
 			}
 			// Readings that stand within the same count share its error.
 			p.i = sum / n
 			p.u = max(math.Sqrt(uu)/n, p.q/math.Sqrt(12)/math.Sqrt(n))
 			p.ux /= math.Sqrt(n)
+			w.shape(&p)
 		}
 		out = append(out, p)
 		j = e
 	}
 	w.pts = out
+}
+
+// stepRatio is the factor by which two currents at one gate reading may differ
+// because of the step of its display: no transistor is steeper than an ideal
+// exponential, and three steps allow for noise. A step beyond coarseDisplay is not
+// that of a meter but of voltages that were set.
+func (w *work) stepRatio() float64 {
+	const coarseDisplay = 10e-3
+	return 1.3 * math.Exp(3*math.Min(w.grid, coarseDisplay)/thermalVoltage)
+}
+
+// alike reports whether two points of one gate voltage may be averaged.
+func (w *work) alike(a, b *point) bool {
+	return !a.disputed && !b.disputed &&
+		math.Abs(a.i-b.i) <= (w.stepRatio()-1)*math.Min(math.Abs(a.i), math.Abs(b.i))+6*rss(a.room, b.room)+3*(a.q+b.q)+2*w.tiny
 }
 
 // drainVoltage is V_DS at a point as far as it is known.
@@ -187,8 +210,16 @@ func (w *work) dropStuck() {
 		}
 		if e-j >= stuckRun && w.isStuck(j, e) {
 			text := "the current stands at " + amps(w.pts[j].i) + " while the gate moves"
-			for k := e - 1; k > j; k-- { // the first of them was still read
-				w.drop(k, CodeStuckReading, text)
+			read := j // the first of them in time was still read
+			for k := j; k < e; k++ {
+				if w.pts[k].k < w.pts[read].k {
+					read = k
+				}
+			}
+			for k := e - 1; k >= j; k-- {
+				if k != read {
+					w.drop(k, CodeStuckReading, text)
+				}
 			}
 			e = j + 1
 		}
@@ -249,10 +280,7 @@ func (w *work) dropStuckGate() {
 			for _, v := range w.pts[j:e] {
 				lo, hi = math.Min(lo, v.i), math.Max(hi, v.i)
 			}
-			// No transistor is steeper than an ideal exponential; three steps of the
-			// display allow for its noise.
-			explained := math.Exp(3*w.grid/thermalVoltage) * 1.3
-			if lo > 5*w.pts[j].q && hi > lo*explained && hi-lo > 10*w.pts[j].q {
+			if lo > 5*w.pts[j].q && hi > lo*w.stepRatio() && hi-lo > 10*w.pts[j].q && w.stoodStill(j, e) {
 				text := "the gate reading stands at " + volts(w.gate*w.pts[j].vg) + " while the current goes from " + amps(lo) + " to " + amps(hi)
 				for k := e - 1; k >= j; k-- {
 					w.drop(k, CodeStuckReading, text)

@@ -21,8 +21,10 @@ const (
 	CodeFewPoints          = "few-points"
 	CodeSubThresholdOnly   = "sub-threshold-only"
 	CodeNotSaturated       = "not-saturated"
+	CodeNotLinear          = "not-linear" // the channel is never a plain resistor
 	CodeCoarseNearCurrent  = "coarse-near-current"
 	CodeHeating            = "heating"
+	CodeGateHistory        = "gate-history" // up and down sweep apart by the same whatever the power
 	CodeHeatingNotChecked  = "heating-not-checked"
 	CodeOscillation        = "oscillation"
 	CodeSweepsDisagree     = "sweeps-disagree"
@@ -102,12 +104,18 @@ var Codes = []CodeInfo{
 	{CodeNotSaturated,
 		"The drain voltage is too small against the overdrive for this method at the points named.",
 		"Raise the drain supply or use a smaller load resistor."},
+	{CodeNotLinear,
+		"The overdrive stays below the drain voltage, so that the channel is never the plain resistor that this method needs.",
+		"Sweep to a higher gate voltage, or make the drain voltage smaller."},
 	{CodeCoarseNearCurrent,
 		"The points near the current asked for lie too far apart to interpolate well.",
 		"Take steps of 10 mV or less around that gate voltage."},
 	{CodeHeating,
 		"Up and down sweep differ by more than their uncertainty: the part warms up, or drifts.",
 		"Measure faster, pulsed or with less drain voltage, or improve the cooling."},
+	{CodeGateHistory,
+		"Up and down sweep differ by more than their uncertainty, and by the same whatever the power: the gate remembers where it was (trapped charge), or something changed between the sweeps.",
+		"Let the part rest at its off voltage before every sweep, sweep all parts the same way, and repeat the up sweep: hysteresis comes again, a change does not."},
 	{CodeHeatingNotChecked,
 		"There is no sweep in the other direction, so heating could not be checked.",
 		"Sweep down as well as up."},

@@ -7,26 +7,43 @@ import (
 	"strconv"
 )
 
-// sweepsApart is how many standard uncertainties of their difference two sweeps
-// of one device may lie apart (judgement; the same limit calls heating).
-const sweepsApart = 3
+const (
+	// sweepsApart is how many standard uncertainties of their difference two sweeps
+	// of one device may lie apart, sweepsLeast and sweepsCoarse how many volts they
+	// may in any case: less matters to nobody, and what two coarse grids interpolate
+	// in the knee is not known better (judgements; the same limits call heating).
+	sweepsApart  = 3
+	sweepsLeast  = 0.5e-3
+	sweepsCoarse = 30e-3
+)
 
 // Combine makes one result of the sweeps of a device. Each sweep was evaluated
 // apart; dirs[k] is "up", "down" or "spot" of rs[k] (missing: unknown).
 //
-// Per quantity the mean weighted with 1/u² where the sweeps agree within
-// three standard uncertainties of their differences, else the first up sweep
-// and the warning sweeps-disagree. The random uncertainty is that of the mean,
-// widened by the scatter where that is greater; the rest of the absolute
-// uncertainty is common to the sweeps and is not averaged. Up and down sweep
-// apart by more than that at the same current: warning heating. No sweep in
+// Gate voltages at a current: the mean weighted with 1/u² where the sweeps agree
+// within three standard uncertainties of their differences, else the first up
+// sweep and the warning sweeps-disagree. The random uncertainty is that of the
+// mean, widened by the scatter where that is greater; the step of a display and the
+// rest of the absolute uncertainty are common to the sweeps and are not averaged.
+//
+// Extrapolated threshold, gain factor, mobility reduction, transconductances and
+// leakage depend on the stretch that a sweep covers, and two sweeps of one device
+// differ in them by more than their uncertainties without anything being wrong:
+// where they do, the first up sweep's value stands (of the largest transconductance
+// the greatest), its random uncertainty widened to half of the difference. Of
+// thresholds by different methods only those by the shown one are averaged: the
+// leading sweep's method, or that of the first sweep that has any.
+//
+// Up and down sweep apart by more than three standard uncertainties at the same
+// current: warning heating; see [Drift] for what whole curves tell. No sweep in
 // the other direction: heating-not-checked.
 //
 // LeftOut stays with the sweeps, for its indices are theirs. The state is
 // Measured when any sweep is; otherwise that of the first up sweep.
 //
 // Source: weighted mean and its widening by the Birge ratio, R. T. Birge, Phys.
-// Rev. 40 (1932) 207–227 (from memory). Checked: TestCombine.
+// Rev. 40 (1932) 207–227 (from memory). Checked: TestCombine,
+// TestCombineDisplayStep, TestCombineMethods.
 func Combine(rs []Result, dirs []string) Result {
 	if len(rs) == 0 {
 		r := NewResult()
@@ -37,17 +54,16 @@ func Combine(rs []Result, dirs []string) Result {
 	r := rs[lead]
 	r.LeftOut = nil
 	r.Warnings = joinWarnings(rs)
-	r.VtBy = combineThresholds(rs, lead)
 	for i := range rs {
 		r.GmRising = r.GmRising || rs[i].GmRising
 	}
-	for _, k := range Keys {
-		if len(rs) == 1 {
-			break
-		}
-		q, agree := combineQuantity(rs, k, lead)
-		*r.At(k) = q
-		if !agree {
+	if len(rs) > 1 {
+		r.VtBy = combineThresholds(rs, lead)
+		r.Method = methodOf(rs, lead)
+		for _, k := range Keys {
+			if combineQuantity(&r, rs, k, lead) {
+				continue
+			}
 			r.Warnings = append(r.Warnings, Warning{CodeSweepsDisagree, disagreement(rs, dirs, k)})
 		}
 	}
@@ -107,51 +123,153 @@ func joinWarnings(rs []Result) []Warning {
 	return all
 }
 
-// combineQuantity gives one quantity over the sweeps that have it, and whether
-// they agree.
-func combineQuantity(rs []Result, k Key, lead int) (Quantity, bool) {
-	var qs []Quantity
+// methodOf is the method of the extrapolated threshold that is shown: the leading
+// sweep's, or where that has none, the first that has one.
+func methodOf(rs []Result, lead int) string {
+	if rs[lead].Vt.Ok() {
+		return rs[lead].Method
+	}
 	for j := range rs {
-		// Extrapolated thresholds by different methods are not averaged.
-		if byMethod := k == KeyVt || k == KeyBeta || k == KeyTheta; byMethod && rs[j].Method != rs[lead].Method {
-			continue
-		}
-		if q := *rs[j].At(k); q.Ok() {
-			qs = append(qs, q)
+		if rs[j].Vt.Ok() {
+			return rs[j].Method
 		}
 	}
-	mine := *rs[lead].At(k)
-	return meanOf(qs, mine)
+	return rs[lead].Method
 }
 
-// meanOf is the weighted mean of qs where they agree, else mine (or the first
-// when mine has no value).
-func meanOf(qs []Quantity, mine Quantity) (Quantity, bool) {
-	switch len(qs) {
-	case 0:
-		return None(), true
-	case 1:
-		return qs[0], true
+// combineQuantity sets one quantity of r from the sweeps that have it, and
+// reports whether they agree as far as that says something of the device.
+func combineQuantity(r *Result, rs []Result, k Key, lead int) bool {
+	var qs []Quantity
+	mine, greatest := None(), -1
+	for j := range rs {
+		q := *rs[j].At(k)
+		switch k {
+		case KeyVt, KeyBeta: // a sweep may have the method shown without showing it
+			if t, ok := rs[j].VtBy[r.Method]; ok && k == KeyVt {
+				q = t.Vt
+			} else if ok {
+				q = t.Beta
+			} else if rs[j].Method != r.Method {
+				continue
+			}
+		case KeyTheta:
+			if rs[j].Method != r.Method {
+				continue
+			}
+		}
+		if !q.Ok() {
+			continue
+		}
+		if j == lead || !mine.Ok() && j > lead {
+			mine = q
+		}
+		if greatest < 0 || q.Value > rs[greatest].At(k).Value {
+			greatest = j
+		}
+		qs = append(qs, q)
 	}
-	if !mine.Ok() {
+	if !mine.Ok() && len(qs) > 0 {
 		mine = qs[0]
 	}
-	if !agree(qs) {
-		return mine, false
-	}
-	var sum, weights, common float64
-	n := 0
-	known := true
-	for _, q := range qs {
-		known = known && q.U > 0
-	}
-	for _, q := range qs {
-		wt := 1.0
-		if known {
-			wt = 1 / (q.U * q.U)
+	if k == KeyVgsth || k == KeyVgsIdle {
+		least := sweepsLeast
+		for j := range rs {
+			if rs[j].coarseAt(k) {
+				least = sweepsCoarse
+			}
 		}
+		_, agree := furthest(qs, least)
+		if agree {
+			mine = meanOf(qs, mine)
+		}
+		*r.At(k) = mine
+		return agree
+	}
+	if _, agree := furthest(qs, 0); k == KeyGmMax && !agree {
+		mine, r.GmRising = *rs[greatest].At(k), rs[greatest].GmRising
+	}
+	*r.At(k) = overStretches(qs, mine)
+	return true
+}
+
+// coarseAt reports whether the points lie too far apart at the current of k: of
+// one such warning for two currents, that is the lower, where curves are steeper.
+func (r *Result) coarseAt(k Key) bool {
+	n := 0
+	for _, w := range r.Warnings {
+		if w.Code == CodeCoarseNearCurrent {
+			n++
+		}
+	}
+	other := r.Vgsth
+	if k == KeyVgsth {
+		other = r.VgsIdle
+	}
+	return n > 1 || n == 1 && (!other.Ok() || math.Abs(r.At(k).Value) <= math.Abs(other.Value))
+}
+
+// overStretches joins values that depend on the stretch that each sweep covers:
+// their mean where they agree, else mine with its random uncertainty widened to
+// half of the greatest difference.
+func overStretches(qs []Quantity, mine Quantity) Quantity {
+	d, agree := furthest(qs, 0)
+	if agree {
+		return meanOf(qs, mine)
+	}
+	if d/2 > mine.U {
+		mine.UAbsolute = math.Sqrt(mine.UAbsolute*mine.UAbsolute - mine.U*mine.U + d*d/4)
+		mine.U = d / 2
+	}
+	return mine
+}
+
+// furthest is the greatest distance between two of them, and whether every two
+// lie less than three standard uncertainties of their difference, or least, apart.
+// Without uncertainties there is no telling.
+func furthest(qs []Quantity, least float64) (d float64, agree bool) {
+	agree = true
+	for a := range qs {
+		for b := a + 1; b < len(qs); b++ {
+			x := math.Abs(qs[a].Value - qs[b].Value)
+			d = math.Max(d, x)
+			agree = agree && !(x > math.Max(least, sweepsApart*math.Hypot(qs[a].U, qs[b].U)))
+		}
+	}
+	return d, agree
+}
+
+// meanOf is the mean of qs weighted with 1/u², mine where there is one or none.
+//
+// Sweeps read by one meter on one grid share the rounding of its display, and
+// where that is all that is left of an uncertainty ([work.stepFloor]) it is the
+// same number in both: it is common and does not average out.
+func meanOf(qs []Quantity, mine Quantity) Quantity {
+	if len(qs) < 2 {
+		return mine
+	}
+	known, step := true, 0.0
+	for a, q := range qs {
+		known = known && q.U > 0
+		for _, o := range qs[:a] {
+			if math.Abs(o.U-q.U) <= 1e-9*q.U {
+				step = q.U
+			}
+		}
+	}
+	weight := func(q Quantity) float64 {
+		if !known {
+			return 1
+		}
+		return 1 / (q.U * q.U)
+	}
+	var sum, weights, own, common float64
+	n := 0
+	for _, q := range qs {
+		wt := weight(q)
 		sum += wt * q.Value
 		weights += wt
+		own += wt * wt * math.Max(0, q.U*q.U-step*step)
 		n += q.N
 		common += wt * (q.UAbsolute*q.UAbsolute - q.U*q.U)
 	}
@@ -159,35 +277,18 @@ func meanOf(qs []Quantity, mine Quantity) (Quantity, bool) {
 	out := Quantity{Value: m, U: math.NaN(), UBetween: math.NaN(), UAbsolute: math.NaN(), N: n}
 	scatter := 0.0
 	for _, q := range qs {
-		wt := 1.0
-		if known {
-			wt = 1 / (q.U * q.U)
-		}
-		scatter += wt * (q.Value - m) * (q.Value - m)
+		scatter += weight(q) * (q.Value - m) * (q.Value - m)
 	}
 	scatter /= weights * float64(len(qs)-1)
 	if known {
-		out.U = math.Sqrt(math.Max(1/weights, scatter))
+		out.U = math.Sqrt(math.Max(own/(weights*weights)+step*step, scatter))
 		out.UAbsolute = math.Sqrt(out.U*out.U + math.Max(0, common/weights))
 	} else if scatter > 0 {
 		out.U = math.Sqrt(scatter)
 	} else {
 		out.U = mine.U
 	}
-	return out, true
-}
-
-// agree reports whether every two of them differ by less than three standard
-// uncertainties of the difference. Without uncertainties there is no telling.
-func agree(qs []Quantity) bool {
-	for a := range qs {
-		for b := a + 1; b < len(qs); b++ {
-			if d := sweepsApart * math.Hypot(qs[a].U, qs[b].U); math.Abs(qs[a].Value-qs[b].Value) > d {
-				return false
-			}
-		}
-	}
-	return true
+	return out
 }
 
 // disagreement tells in words what two sweeps give for one quantity: the two that
@@ -219,22 +320,27 @@ func disagreement(rs []Result, dirs []string, k Key) string {
 		x + " " + one + ", " + y + " " + other + "; the first up sweep is used."
 }
 
-// combineThresholds averages each method over the sweeps that have it.
+// combineThresholds joins each method over the sweeps that have it; From and To
+// are those of the leading sweep, or of the first that has the method.
 func combineThresholds(rs []Result, lead int) map[string]Threshold {
 	var out map[string]Threshold
 	for _, method := range [...]string{"sqrt", "linear", "ratio", "curve"} {
 		var vt, beta []Quantity
+		t, ok := rs[lead].VtBy[method]
 		for j := range rs {
-			if t, ok := rs[j].VtBy[method]; ok {
-				vt, beta = append(vt, t.Vt), append(beta, t.Beta)
+			o, has := rs[j].VtBy[method]
+			if !has {
+				continue
 			}
+			if !ok {
+				t, ok = o, true
+			}
+			vt, beta = append(vt, o.Vt), append(beta, o.Beta)
 		}
-		if len(vt) == 0 {
+		if !ok {
 			continue
 		}
-		t := rs[lead].VtBy[method] // From and To are those of the leading sweep
-		t.Vt, _ = meanOf(vt, t.Vt)
-		t.Beta, _ = meanOf(beta, t.Beta)
+		t.Vt, t.Beta = overStretches(vt, t.Vt), overStretches(beta, t.Beta)
 		if out == nil {
 			out = make(map[string]Threshold, 2)
 		}
@@ -272,8 +378,12 @@ func checkHeating(rs []Result, dirs []string) []Warning {
 		for _, a := range up {
 			for _, b := range down {
 				p, q := *rs[a].At(k), *rs[b].At(k)
-				if u := math.Hypot(p.U, q.U); p.Ok() && q.Ok() && math.Abs(p.Value-q.Value) > sweepsApart*u {
-					gaps = append(gaps, gap{p.Value - q.Value, u})
+				least := sweepsLeast
+				if rs[a].coarseAt(k) || rs[b].coarseAt(k) {
+					least = sweepsCoarse
+				}
+				if _, agree := furthest([]Quantity{p, q}, least); p.Ok() && q.Ok() && !agree {
+					gaps = append(gaps, gap{p.Value - q.Value, math.Hypot(p.U, q.U)})
 				}
 			}
 		}

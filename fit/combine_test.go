@@ -140,13 +140,13 @@ func TestHeatingOnCurves(t *testing.T) {
 // unit and sweep.
 func TestDisagreementInWords(t *testing.T) {
 	a, b := measured(3.381, 1e-3, 0), measured(3.301, 1e-3, 0)
-	a.GmMax, b.GmMax = quantity(1.5, 1e-3, 0), quantity(1.7, 1e-3, 0)
+	a.VgsIdle, b.VgsIdle = quantity(3.5, 1e-3, 0), quantity(3.7, 1e-3, 0)
 	for _, c := range []struct {
 		dirs []string
 		want []string
 	}{
-		{[]string{"down", "up"}, []string{"V_GS(th) differs", "3.3010 V up, 3.3810 V down", "Largest transconductance differs", "1.7 S up, 1.5 S down"}},
-		{[]string{"up", "up"}, []string{"3.3810 V in sweep 1, 3.3010 V in sweep 2", "1.5 S in sweep 1, 1.7 S in sweep 2"}},
+		{[]string{"down", "up"}, []string{"V_GS(th) differs", "3.3010 V up, 3.3810 V down", "Gate bias at the idle current differs", "3.7000 V up, 3.5000 V down"}},
+		{[]string{"up", "up"}, []string{"3.3810 V in sweep 1, 3.3010 V in sweep 2", "3.5000 V in sweep 1, 3.7000 V in sweep 2"}},
 		{nil, []string{"3.3810 V in sweep 1, 3.3010 V in sweep 2"}},
 	} {
 		text := warningText(Combine([]Result{a, b}, c.dirs), CodeSweepsDisagree)

@@ -40,9 +40,8 @@ func (w *work) settleCurrents() {
 	if w.ammeter && (w.byLoad || w.byDrain) {
 		w.compareMeters()
 	}
-	disputed := w.pickCurrents()
-	if disputed > 0 {
-		w.settleDisputes()
+	if w.pickCurrents() > 0 {
+		w.guessDisputes()
 	}
 	w.pts = slices.DeleteFunc(w.pts, func(p point) bool {
 		bad := !finiteNumber(p.i) || !finiteNumber(p.u)
@@ -83,7 +82,7 @@ func (w *work) calibrateSupply() {
 // compareMeters finds the ratio of the two currents over the curve, says what is
 // wrong with it, and decides whose scale is kept.
 func (w *work) compareMeters() {
-	var ratios []float64
+	var ratios, loads []float64
 	var topA, topL, countL, countA float64
 	for j := range w.pts {
 		p := &w.pts[j]
@@ -102,7 +101,7 @@ func (w *work) compareMeters() {
 		deadA = deadA && !(math.Abs(p.a) > 5*p.qa)
 		deadL = deadL && !(math.Abs(p.l) > 5*p.ql)
 		if clearA && clearL && p.a > 0.03*topA && p.l > 0.03*topL {
-			ratios = append(ratios, p.a/p.l)
+			ratios, loads = append(ratios, p.a/p.l), append(loads, p.l)
 		}
 	}
 	other := w.loadName()
@@ -118,7 +117,7 @@ func (w *work) compareMeters() {
 	case len(ratios) == 0 || len(ratios) < 3 && len(w.pts) > 3:
 		return
 	}
-	w.ratio = median(ratios)
+	w.ratio = median(slices.Clone(ratios))
 	lg := math.Log10(w.ratio)
 	if k := 3 * math.Round(lg/3); k != 0 && math.Abs(lg-k) < 0.1 {
 		w.warn(CodePrefixLost, "The ammeter's current is "+si(math.Pow(10, k), "")+
@@ -127,6 +126,9 @@ func (w *work) compareMeters() {
 		return
 	}
 	w.onLoad = w.loadIsFiner(topA)
+	if w.byLoad && w.warming(ratios, loads) {
+		w.onLoad = false // whatever its statement says, this R_L is not constant
+	}
 	if tol := w.mismatchLimit(topA); math.Abs(w.ratio-1) > tol {
 		w.doubt = math.Abs(w.ratio-1) / math.Sqrt(3) // either may be right
 		kept := "the ammeter is used"
@@ -209,7 +211,7 @@ func (w *work) both(p *point) (a, l float64) {
 	if w.onLoad {
 		return p.a / w.ratio, p.l
 	}
-	return p.a, p.l * w.ratio
+	return p.a, p.l * (w.ratio + w.warm*p.l*p.l)
 }
 
 // pickCurrents sets the current of every point where the readings agree or only
@@ -225,7 +227,7 @@ func (w *work) pickCurrents() (disputed int) {
 		case math.IsNaN(a) || prefix:
 			w.use(p, true)
 		case !w.agree(p, a, l):
-			p.i = math.NaN()
+			p.i, p.disputed = math.NaN(), true
 			disputed++
 		case w.byDrain:
 			w.use(p, false) // a difference of large voltages only checks
@@ -239,20 +241,21 @@ func (w *work) pickCurrents() (disputed int) {
 // agree allows four standard deviations of the last digits, a count each for
 // offsets, and 2 % for noise and heating of R_L.
 func (w *work) agree(p *point, a, l float64) bool {
-	u := rss(random(p.qa, p.na), random(p.ql, p.nl))
+	u := rss(p.wa, p.wl)
 	return math.Abs(a-l) <= 4*u+p.qa+p.ql+0.02*math.Max(math.Abs(a), math.Abs(l))+2*w.supplyDoubt()
 }
 
 // use takes one of the two readings alone.
 func (w *work) use(p *point, load bool) {
 	a, l := w.both(p)
+	p.load = load
 	if load {
-		p.i, p.q, p.u = l, p.ql, random(p.ql, p.nl)
+		p.i, p.q, p.u, p.room = l, p.ql, random(p.ql, p.nl), p.wl
 		return
 	}
-	p.i, p.q, p.u = a, p.qa, random(p.qa, p.na)
+	p.i, p.q, p.u, p.room = a, p.qa, random(p.qa, p.na), p.wa
 	if w.onLoad {
-		p.q, p.u = p.q/w.ratio, p.u/w.ratio
+		p.q, p.u, p.room = p.q/w.ratio, p.u/w.ratio, p.room/w.ratio
 	}
 }
 
@@ -269,119 +272,65 @@ func (w *work) mix(p *point, a, l float64) {
 	wl := 1 - wa
 	p.i = wa*a + wl*l
 	p.u = rss(wa*ua, wl*ul)
+	p.room = rss(wa*p.wa, wl*p.wl)
 	p.q = p.ql
 	if wa > wl {
 		p.q = p.qa
 	}
 }
 
-// settleDisputes asks the neighbours where the two readings of a point
-// disagree, keeps the reading that lies where a rising curve must lie, and
-// leaves the point out when neither does.
-func (w *work) settleDisputes() {
-	var kinds [3]struct{ ammeter, load []float64 }
-	codes := [3]string{CodePrefixLost, CodeDecadeSpike, CodeCurrentMismatch}
-	settled := make([]point, 0, len(w.pts))
-	for j := range w.pts {
-		p := w.pts[j]
-		if !math.IsNaN(p.i) {
-			settled = append(settled, p)
+// leastWarming is the least change of the ratio of two currents along a sweep that
+// is called a warming resistor: ranges of one meter may differ by a percent.
+const leastWarming = 0.02
+
+// warming finds out whether the ratio of the two currents changes with the power in
+// the load resistor, I² R_L, as it does when the resistor warms up; says so, and
+// lets the load current follow the ammeter along the curve. Not for a difference of
+// supply and drain voltage, whose own error changes along the curve.
+//
+// A straight line of the ratios over the power by least squares, those off by more
+// than 30 % left out; a change by 2 %, four times its standard deviation and twice the
+// scatter about the line counts. Checked: TestLoadWarmsUp.
+func (w *work) warming(ratios, loads []float64) bool {
+	top := 0.0
+	n, sx, sy, sxx, sxy, syy := 0.0, 0.0, 0.0, 0.0, 0.0, 0.0
+	cool, hot := 0, 0
+	for k, r := range ratios {
+		if math.Abs(r/w.ratio-1) < 0.3 {
+			top = math.Max(top, loads[k])
+		}
+	}
+	for k, r := range ratios {
+		if math.Abs(r/w.ratio-1) >= 0.3 {
 			continue
 		}
-		a, l := w.both(&p)
-		lo, hi := w.expected(j)
-		da, dl := outside(a, lo, hi), outside(l, lo, hi)
-		kind := 2
-		if r := math.Abs(math.Log10(math.Abs(a / l))); math.Abs(r-3) < 0.1 {
-			kind = 0
-		} else if math.Abs(r-1) < 0.06 {
-			kind = 1
+		x := loads[k] / top
+		x *= x
+		if x < 0.4 {
+			cool++
+		} else if x > 0.5 {
+			hot++
 		}
-		// 30 %: beyond what interpolation between neighbours may be wrong by.
-		if math.IsNaN(lo) || math.Min(da, dl) > 0.3 {
-			w.leave(p.k, codes[kind], "ammeter and "+w.loadName()+" disagree ("+amps(p.a)+
-				" and "+amps(p.l)+") and the neighbours fit neither")
-			continue
-		}
-		useLoad := dl < da || dl == da && random(p.ql, p.nl) < random(p.qa, p.na)
-		w.use(&p, useLoad)
-		if useLoad {
-			kinds[kind].ammeter = append(kinds[kind].ammeter, w.gate*p.vg)
-		} else {
-			kinds[kind].load = append(kinds[kind].load, w.gate*p.vg)
-		}
-		settled = append(settled, p)
+		n, sx, sy, sxx, sxy, syy = n+1, sx+x, sy+r, sxx+x*x, sxy+x*r, syy+r*r
 	}
-	w.pts = settled
-	for k, v := range kinds {
-		if len(v.ammeter) > 0 {
-			w.warn(codes[k], "The ammeter's reading contradicts "+w.loadName()+" and the neighbours at "+places(v.ammeter)+"; "+w.loadName()+" is used there.")
-		}
-		if len(v.load) > 0 {
-			w.warn(codes[k], w.loadName()+" contradicts the ammeter and the neighbours at "+places(v.load)+"; the ammeter is used there.")
-		}
+	if cool < 2 || hot < 2 {
+		return false // no two ends to compare
 	}
-}
-
-// expected is the range in which the current of point j must lie by its nearest
-// settled neighbours; NaN when there is none.
-func (w *work) expected(j int) (lo, hi float64) {
-	before, after := j-1, j+1
-	for before >= 0 && math.IsNaN(w.pts[before].i) {
-		before--
+	sxx, sxy, syy = sxx-sx*sx/n, sxy-sx*sy/n, syy-sy*sy/n
+	change := sxy / sxx
+	scatter := math.Sqrt(math.Max(0, syy-change*sxy) / (n - 2))
+	if !(math.Abs(change) > leastWarming) || !(math.Abs(change) > 4*scatter/math.Sqrt(sxx)) || !(math.Abs(change) > 2*scatter) {
+		return false
 	}
-	for after < len(w.pts) && math.IsNaN(w.pts[after].i) {
-		after++
+	cold := (sy - change*sx) / n
+	why := "R_L warms up, its resistance grows by " + percent(-change/cold)
+	if change > 0 {
+		why = "the ammeter or R_L changes with the current"
 	}
-	switch {
-	case before < 0 && after >= len(w.pts):
-		return math.NaN(), math.NaN()
-	case before < 0:
-		return math.Inf(-1), w.pts[after].i
-	case after >= len(w.pts):
-		return w.pts[before].i, math.Inf(1)
-	}
-	return w.between(&w.pts[before], &w.pts[after], w.pts[j].vg)
-}
-
-// between is where a transfer curve may lie at vg between two of its points:
-// its logarithm bends down and, until load or series resistance limit it, its
-// square root bends up, so it lies between the two chords. A leakage under the
-// foot bends the logarithm up: it is taken off before.
-func (w *work) between(a, b *point, vg float64) (lo, hi float64) {
-	if !(b.vg > a.vg) {
-		return math.Min(a.i, b.i), math.Max(a.i, b.i)
-	}
-	t := (vg - a.vg) / (b.vg - a.vg)
-	ia, ib := math.Max(a.i, 0), math.Max(b.i, 0)
-	r := (1-t)*math.Sqrt(ia) + t*math.Sqrt(ib)
-	hi = r * r
-	lo = math.Min(ia, ib)
-	if fa, fb := ia-w.base, ib-w.base; fa > 2*a.q+3*a.u && fa > 0.02*w.base && fb > fa {
-		lo = w.base + math.Exp((1-t)*math.Log(fa)+t*math.Log(fb))
-	}
-	if lo > hi {
-		lo, hi = hi, lo
-	}
-	return lo, hi
-}
-
-// outside is the logarithm of the factor by which x lies outside lo…hi, 0
-// within.
-func outside(x, lo, hi float64) float64 {
-	switch {
-	case x > hi:
-		if hi <= 0 {
-			return math.Inf(1)
-		}
-		return math.Log(x / hi)
-	case x < lo:
-		if x <= 0 {
-			return math.Inf(1)
-		}
-		return math.Log(lo / x)
-	}
-	return 0
+	w.warn(CodeCurrentMismatch, "The ammeter's current goes from "+number(cold)+" to "+number(cold+change)+" times "+w.loadName()+
+		" as the power in R_L rises to "+si(top*top*w.s.RL, "W")+": "+why+"; the ammeter is used.")
+	w.ratio, w.warm = cold, change/(top*top)
+	return true
 }
 
 // median of x, which is sorted in place; NaN when empty.

@@ -229,3 +229,51 @@ func TestNoCurrentColumn(t *testing.T) {
 		t.Errorf("state %s: %s", r.State, r.Why)
 	}
 }
+
+// Self-made: R_L grows by some percent with its power. Said as that, from 3 % on,
+// with the ammeter's values and no point lost; a resistor off by some percent, or an
+// ammeter whose ranges differ by a percent, is not called warm.
+func TestLoadWarmsUp(t *testing.T) {
+	said := map[float64]int{}
+	const n = 20
+	for _, grows := range []float64{0, 0.03, 0.06, 0.12} {
+		for seed := range uint64(n) {
+			m := []simMeters{handheld(), fineMeters()}[seed%2]
+			c, s, d := twoMeters(m, 900+seed)
+			top := 0.0
+			for _, v := range c.Vl {
+				top = math.Max(top, v)
+			}
+			for k, v := range c.Vl {
+				c.Vl[k] = math.Round(v*(1+grows*v*v/(top*top))*1e4) / 1e4
+			}
+			r := One(c, s)
+			text := warningText(r, CodeCurrentMismatch)
+			if strings.Contains(text, "warms up") {
+				said[grows]++
+			} else if text != "" {
+				t.Errorf("%g: %s", grows, text)
+			}
+			if len(r.LeftOut) > 0 {
+				t.Errorf("%g: left out %v", grows, r.LeftOut)
+			}
+			near(t, "gate bias", r.VgsIdle.Value, d.gateFor(simBench{circuit: Load, rl: 10, vdd: 12}, s.IdleCurrent), 3e-3)
+		}
+	}
+	t.Log(said)
+	if said[0] > 0 || said[0.03] < n*9/10 || said[0.06] < n || said[0.12] < n {
+		t.Errorf("said of %d each: %v", n, said)
+	}
+	for _, f := range []float64{0.92, 1.07} {
+		c, s, _ := twoMeters(handheld(), 950)
+		for k := range c.Id {
+			c.Id[k] *= f
+			if c.Id[k] > 60e-3 {
+				c.Id[k] *= 1.01
+			}
+		}
+		if text := warningText(One(c, s), CodeCurrentMismatch); text == "" || strings.Contains(text, "warms up") {
+			t.Errorf("factor %g: %q", f, text)
+		}
+	}
+}

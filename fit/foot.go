@@ -3,20 +3,22 @@ package fit
 import "math"
 
 const (
-	// footShare of the greatest current bounds the foot of a sweep, and footLeast
-	// is the fewest points there that tell of noise (judgement).
+	// footShare of the greatest current bounds the foot of a sweep; footLeast is the
+	// fewest points there that tell of noise, and footHint the fewest that warn of it
+	// (judgement).
 	footShare = 1e-3
 	footLeast = 8
+	footHint  = 4
 )
 
 // footNoise is the standard deviation, A, of the currents at the foot of the
 // sweep, where the part is off and hardly anything but the meter moves: 0 with
-// too few points there. The median of the second differences does not mind the
+// fewer than least points there. The median of the second differences does not mind the
 // beginning of the rise.
 //
 // Source: second differences as in T. Gasser, L. Sroka and C. Jennen-Steinmetz,
 // Biometrika 73 (1986) 625–633 (from memory). Checked: TestFootNoise.
-func (w *work) footNoise() float64 {
+func (w *work) footNoise(least int) float64 {
 	top := 0.0
 	for j := range w.pts {
 		top = math.Max(top, w.pts[j].i)
@@ -25,7 +27,7 @@ func (w *work) footNoise() float64 {
 	for n < len(w.pts) && w.pts[n].i < footShare*top {
 		n++
 	}
-	if n < footLeast {
+	if n < least {
 		return 0
 	}
 	d := make([]float64, 0, n-2)
@@ -36,10 +38,24 @@ func (w *work) footNoise() float64 {
 }
 
 // raiseToFoot gives no point a smaller uncertainty than the meter shows at the
-// foot: its last digits are not its noise.
+// foot: its last digits are not its noise. Least of all where the current is the
+// difference of two large voltages: there a short foot must do, and where there is
+// none the noise that is common with handheld meters.
 func (w *work) raiseToFoot() {
-	noise := w.footNoise()
+	noise := w.footNoise(footLeast)
+	short := noise
+	if noise == 0 && w.byDrain {
+		short = w.footNoise(footHint)
+	}
 	for j := range w.pts {
-		w.pts[j].u = math.Max(w.pts[j].u, noise)
+		p := &w.pts[j]
+		p.u = math.Max(p.u, noise)
+		switch {
+		case !w.byDrain || !p.load || p.nl > 0:
+		case short > 0:
+			p.u = math.Max(p.u, short)
+		default:
+			p.u = math.Max(p.u, p.wl)
+		}
 	}
 }

@@ -22,7 +22,8 @@ const (
 //
 // Result: A; [None] when nothing was measured within 0.2 V of the off voltage.
 // Warns drain-leakage above 2 % of the test current, at least 20 µA, where the
-// meter can tell that from its zero. Checked: TestLeakage.
+// meter can tell that from its zero and from its noise: five standard deviations,
+// those of the difference of two large voltages included. Checked: TestLeakage.
 func (w *work) leakage(r *Result) {
 	off := w.s.OffV
 	if math.IsNaN(off) {
@@ -35,7 +36,7 @@ func (w *work) leakage(r *Result) {
 	if !(near <= offReach) {
 		return
 	}
-	sum, uu, q, n := 0.0, 0.0, 0.0, 0
+	sum, uu, q, room, n := 0.0, 0.0, 0.0, 0.0, 0
 	top := 0.0
 	least, most := math.Inf(1), math.Inf(-1)
 	for j := range w.pts {
@@ -45,6 +46,7 @@ func (w *work) leakage(r *Result) {
 			sum += p.i
 			uu += p.u * p.u
 			q = math.Max(q, p.q)
+			room = math.Max(room, p.room)
 			n++
 			top = math.Max(top, p.vg)
 		}
@@ -59,7 +61,7 @@ func (w *work) leakage(r *Result) {
 	}
 	abs := w.relativeUsed(math.Max(math.Abs(i), q)) * math.Max(math.Abs(i), q)
 	r.Idss = Quantity{Value: w.sign * i, U: u, UBetween: math.NaN(), UAbsolute: rss(u, abs), N: n}
-	w.judgeLeakage(i, q, abs)
+	w.judgeLeakage(i, q, math.Max(room/math.Sqrt(float64(n)), u), abs)
 }
 
 // turningOn reports whether the current at vg already rises as a channel does,
@@ -75,13 +77,13 @@ func (w *work) turningOn(vg float64) bool {
 	return false
 }
 
-func (w *work) judgeLeakage(i, q, abs float64) {
+func (w *work) judgeLeakage(i, q, noise, abs float64) {
 	test := w.s.TestCurrent
 	if !positive(test) {
 		test = noTestCurrent
 	}
 	limit := math.Max(leakShare*test, leakLeast)
-	if i <= limit || i <= floorCounts*q || i <= 3*abs {
+	if i <= limit || i <= floorCounts*q || i <= 5*noise || i <= 3*abs {
 		return
 	}
 	w.warn(CodeDrainLeakage, "The drain carries "+amps(i)+" at the off voltage (more than "+amps(limit)+

@@ -163,7 +163,7 @@ func TestFootNoise(t *testing.T) {
 				s.TestCurrent, s.IdleCurrent = 10e-3, 250e-3
 				w := newWork(c, s)
 				w.settleCurrents()
-				near(t, "noise at the foot", w.footNoise(), noise, 0.6*noise)
+				near(t, "noise at the foot", w.footNoise(footLeast), noise, 0.6*noise)
 				q := One(c, s)
 				if q.Has(CodeOscillation) || q.State != Measured {
 					t.Errorf("%g A of noise, %g V steps: %s, codes %s", noise, step, q.State, codesOf(q))

@@ -59,7 +59,7 @@ func (w *work) evaluate(r *Result) {
 		w.warn(CodeFewPoints, r.Why)
 		return
 	}
-	if w.contradictory() {
+	if w.oscillates() {
 		r.State = Declined
 		r.Why = "Too many readings contradict a rising curve."
 		return
@@ -93,27 +93,6 @@ func stateCode(s State) string {
 		return CodeAboveRange
 	}
 	return ""
-}
-
-// contradictory reports whether so many points were left out that the rest
-// cannot be trusted either, and warns of oscillation from a fifth on.
-func (w *work) contradictory() bool {
-	n := 0
-	for _, l := range w.left {
-		if l.Code == CodeOutOfLine || l.Code == CodeRangeGlitch {
-			n++
-		}
-	}
-	all := n
-	for j := range w.pts {
-		if w.pts[j].i > w.tiny && w.pts[j].above() {
-			all++
-		}
-	}
-	if n >= 3 && 5*n >= all {
-		w.warn(CodeOscillation, count(n, "point contradicts", "points contradict")+" a rising curve, as with a part that oscillates.")
-	}
-	return w.hopeless || n >= 3 && 5*n > 2*all
 }
 
 // tellAccuracy says which statement is missing for an absolute uncertainty.
@@ -244,23 +223,37 @@ func (w *work) extrapolated(r *Result) {
 		w.warn(CodeNoCircuit, "The circuit is not given: constant-current values only.")
 		return
 	}
-	if w.s.Circuit == Fixed && w.fixedVds() < unreadVds {
-		if curve, ok := w.resistiveCurve(); ok {
-			if t, ok := w.tangent(curve); ok {
-				t.Theta = None()
-				set("linear", t)
-			}
-			if t, theta, ok := w.ratioMethod(curve); ok {
-				t.Theta = theta
-				set("ratio", t)
-			}
+	small := w.s.Circuit == Fixed && w.fixedVds() < unreadVds
+	never, root := false, true
+	if small {
+		never, root = w.neverLinear()
+	}
+	if small && !never {
+		w.resistiveThresholds(set)
+	} else if root {
+		if t, ok := w.squareRoot(); ok {
+			t.Theta = None()
+			set("sqrt", t)
 		}
-	} else if t, ok := w.squareRoot(); ok {
-		t.Theta = None()
-		set("sqrt", t)
 	}
 	if t, ok := w.curveThreshold(r); ok {
 		set("curve", t)
 	}
 	r.Levels = w.levels()
+}
+
+// resistiveThresholds are those of a channel that is a resistor.
+func (w *work) resistiveThresholds(set func(string, Threshold)) {
+	curve, ok := w.resistiveCurve()
+	if !ok {
+		return
+	}
+	if t, ok := w.tangent(curve); ok {
+		t.Theta = None()
+		set("linear", t)
+	}
+	if t, theta, ok := w.ratioMethod(curve); ok {
+		t.Theta = theta
+		set("ratio", t)
+	}
 }

@@ -3,39 +3,39 @@ package fit
 import (
 	"math"
 	"slices"
+	"sort"
 )
 
 const (
 	// fallTolerance is by how much a later current may be smaller than an
 	// earlier one and still count as noise, drift or a plateau (judgement).
 	fallTolerance = 0.05
-	// lineTolerance is by how much a current may lie outside the range that its
-	// two neighbours leave it (judgement; besides five standard deviations).
-	lineTolerance = 0.06
-	// leastJump is the least displacement, V, that is called a jump: twice the
-	// scatter of a handheld's gate reading (judgement).
-	leastJump = 1.5e-3
-	// mostDropped bounds the points that are dropped from a very long curve before
-	// it is given up.
-	mostDropped = 1000
+	// fewestInChain is the fewest points of which one may be found to be wrong, and
+	// mostRounds bounds how often the rest is looked at again.
+	fewestInChain = 5
+	mostRounds    = 4
 	// pairReach bounds the pairs that are compared on very long curves.
 	pairReach = 300
 )
 
 // contradicts reports whether point b, at the higher gate voltage, carries so
-// much less current than a that a rising curve cannot hold both.
+// much less current than a that a rising curve cannot hold both; or, at the same
+// gate voltage, another current.
 func (w *work) contradicts(a, b *point) bool {
+	if a.vg == b.vg {
+		return !w.alike(a, b)
+	}
 	fall := a.i - b.i - fallTolerance*math.Abs(a.i)
 	if fall <= 0 || b.vg-a.vg <= math.Max(1e-3, math.Max(2*w.grid, 4*a.ux)) {
 		return false // noise of the gate reading may have exchanged them
 	}
-	return fall > 5*rss(a.u, b.u)+2*(a.q+b.q)+2*w.tiny
+	return fall > 5*rss(a.room, b.room)+2*(a.q+b.q)+2*w.tiny
 }
 
-// dropContradictions leaves out, worst first, the points that contradict most
-// others: a transfer curve rises, and one gate reading ten times too large
-// would ruin whatever is fitted to it.
-func (w *work) dropContradictions() {
+// survey finds what judging faults needs to know of the whole curve: the least
+// current, the current below which shape does not matter, and whether the curve
+// falls instead of rising.
+func (w *work) survey() {
 	n := len(w.pts)
 	w.tiny = w.leastOfInterest()
 	top, falls := math.Inf(-1), false
@@ -44,181 +44,136 @@ func (w *work) dropContradictions() {
 		w.base = math.Min(w.base, math.Max(0, w.pts[j].i))
 		top = math.Max(top, w.pts[j].i)
 		falls = falls || top-w.pts[j].i > fallTolerance*math.Abs(top)+2*w.pts[j].q+2*w.tiny
+		w.ties = w.ties || j > 0 && w.pts[j].vg == w.pts[j-1].vg
+	}
+	noise := w.footNoise(footHint)
+	for j := range w.pts {
+		w.shape(&w.pts[j])
+		w.pts[j].room = math.Max(w.pts[j].room, noise)
 	}
 	if !falls {
 		return
 	}
-	var counts []int
 	falling, rising := 0, 0
 	for i := range n {
 		for j := i + 1; j < min(n, i+pairReach); j++ {
 			if w.contradicts(&w.pts[i], &w.pts[j]) {
-				if counts == nil {
-					counts = make([]int, n)
-				}
-				counts[i]++
-				counts[j]++
 				falling++
 			} else if w.pts[j].i > w.pts[i].i {
 				rising++
 			}
 		}
 	}
-	if counts == nil {
-		return
-	}
-	if falling > 3*rising && falling > n {
-		w.falling = true // not for cleaning: the whole curve says so
-		return
-	}
-	rank := make([]int, n) // place before anything was dropped: which pairs were counted
-	for j := range rank {
-		rank[j] = j
-	}
-	for dropped := 0; ; dropped++ {
-		j := w.worst(counts)
-		if counts[j] == 0 {
-			return
-		}
-		if dropped == mostDropped {
-			w.hopeless = true
-			return
-		}
-		p := w.pts[j]
-		for i := range w.pts {
-			near := rank[i] > rank[j]-pairReach && rank[i] < rank[j]+pairReach
-			if near && (i < j && w.contradicts(&w.pts[i], &p) || i > j && w.contradicts(&p, &w.pts[i])) {
-				counts[i]--
-			}
-		}
-		counts, rank = slices.Delete(counts, j, j+1), slices.Delete(rank, j, j+1)
-		code, text := w.nameFault(j)
-		w.drop(j, code, text)
-	}
+	w.falling = falling > 3*rising && falling > n
 }
 
-// worst is the point with the most contradictions; of equals the one that lies
-// furthest outside the range of its neighbours.
-func (w *work) worst(counts []int) int {
-	best, excess := 0, -1.0
-	for j, c := range counts {
-		if c == 0 || c < counts[best] {
+// dropFaults leaves out the points that no transfer curve could hold together
+// with the others, and settles which of two readings that disagree is used.
+func (w *work) dropFaults() {
+	if len(w.pts) < fewestInChain {
+		w.dropNeither()
+		return
+	}
+	var out []point
+	for range mostRounds {
+		w.limit = 0
+		if w.sound() {
+			break
+		}
+		w.jump()
+		h := w.newChain()
+		pts := make([]point, 0, len(w.pts))
+		for j, y := range h.best() {
+			p := w.pts[j]
+			if y < 0 {
+				out = append(out, p)
+				continue
+			}
+			if c := &h.c[y]; c.other {
+				w.use(&p, c.load)
+				w.shape(&p)
+			}
+			pts = append(pts, p)
+		}
+		if len(pts) == len(w.pts) {
+			break
+		}
+		w.pts = pts // without them the scatter may be less
+	}
+	for k := range out {
+		p := &out[k]
+		if p.disputed {
+			w.dropDispute(p)
 			continue
 		}
-		e := w.excess(j)
-		if c > counts[best] || e > excess {
-			best, excess = j, e
+		code, text := w.nameFault(p)
+		w.leave(p.k, code, text)
+		if code != CodeDecadeSpike && !w.leftover(p) {
+			w.odd++
 		}
 	}
-	return best
 }
 
-// excess is the logarithm of the factor by which the current of an inner point
-// lies outside what its neighbours leave it; for the ends, beyond the next.
-func (w *work) excess(j int) float64 {
-	p := w.pts
-	switch {
-	case len(p) < 3:
-		return 0
-	case j == 0:
-		return outside(p[0].i, math.Inf(-1), p[1].i)
-	case j == len(p)-1:
-		return outside(p[j].i, p[j-1].i, math.Inf(1))
+// sound reports whether every point lies in the bracket of its neighbours and
+// none is disputed.
+func (w *work) sound() bool {
+	var before *point
+	for j := range w.pts {
+		b := &w.pts[j]
+		if b.disputed || j > 0 && w.contradicts(&w.pts[j-1], b) {
+			return false
+		}
+		if j == 0 || j+1 == len(w.pts) {
+			continue
+		}
+		if w.breachOf(before, &w.pts[j-1], b, &w.pts[j+1]) != 0 {
+			return false
+		}
+		before = &w.pts[j-1]
 	}
-	lo, hi := w.between(&p[j-1], &p[j+1], p[j].vg)
-	return outside(p[j].i, lo, hi)
+	return true
 }
 
-// dropSpikes leaves out, worst first, single points that do not contradict a
-// rising curve but lie outside what their neighbours leave them by more than
-// the noise of the curve explains.
-func (w *work) dropSpikes() {
-	if w.falling || len(w.pts) < 5 {
+// dropNeither leaves out, of few points, those with two readings neither of which
+// fits between the neighbours.
+func (w *work) dropNeither() {
+	for j := len(w.pts) - 1; j >= 0; j-- {
+		p := &w.pts[j]
+		if !p.disputed {
+			continue
+		}
+		lo, hi := w.expected(j)
+		// 30 %: beyond what interpolation between neighbours may be wrong by.
+		if math.IsNaN(lo) || outside(p.i, lo, hi) > 0.3 {
+			w.dropDispute(p)
+			w.pts = slices.Delete(w.pts, j, j+1)
+		}
+	}
+}
+
+// dropLast leaves out the last point where it is ten times off: of the end of a
+// steep curve no more can be told.
+func (w *work) dropLast() {
+	n := len(w.pts)
+	if n < fewestInChain {
 		return
 	}
-	limit := 0.0
-	for tries := 0; tries < 1+len(w.pts)/8; tries++ {
-		worst, by := -1, 0.0
-		for j := 1; j < len(w.pts); j++ {
-			e := w.spike(j)
-			if e > by {
-				worst, by = j, e
-			}
-		}
-		if worst < 0 {
-			return
-		}
-		if limit == 0 {
-			limit = math.Max(8*w.roughness(), leastJump)
-			if w.ties {
-				limit = math.Max(limit, 3*w.grid)
-			}
-		}
-		if w.beyond(worst) <= limit {
-			return
-		}
-		code, text := w.nameFault(worst)
-		if worst == len(w.pts)-1 && code != CodeDecadeSpike {
-			return // at the end only a factor of ten is told from a steep curve
-		}
-		w.drop(worst, code, text)
+	a, b, p := &w.pts[n-3], &w.pts[n-2], w.pts[n-1]
+	if a.i <= clearCounts*a.q {
+		return
 	}
-}
-
-// spike is excess where it is beyond doubt, else 0. A knee or the corner of a
-// load line bends the curve as well, but there the point still continues what
-// its neighbours on one side began; a spike continues neither.
-func (w *work) spike(j int) float64 {
-	p := w.pts
-	last := j == len(p)-1
-	var lo, hi float64
-	noise := p[j].u
-	if last {
-		if p[j-2].i <= clearCounts*p[j-2].q {
-			return 0
-		}
-		lo, hi = continued(&p[j-2], &p[j-1], p[j].vg)
-		lo = math.Min(lo, p[j-1].i) // it may have come to its limit
-		noise = rss(noise, p[j-1].u)
-	} else {
-		lo, hi = w.between(&p[j-1], &p[j+1], p[j].vg)
-		noise = rss(noise, rss(p[j-1].u, p[j+1].u))
+	lo, hi := continued(a, b, p.vg)
+	lo = math.Min(lo, b.i) // it may have come to its limit
+	if math.Max(hi, p.i) < w.tiny || outside(p.i, lo, hi) <= lineTolerance ||
+		math.Max(lo-p.i, p.i-hi) <= 6*rss(p.room, b.room)+3*p.q+lineTolerance*math.Abs(p.i) {
+		return
 	}
-	e := outside(p[j].i, lo, hi)
-	if e <= lineTolerance {
-		return 0
+	w.pts = w.pts[:n-1]
+	if code, text := w.nameFault(&p); code == CodeDecadeSpike {
+		w.leave(p.k, code, text)
+		return
 	}
-	beyond := math.Max(lo-p[j].i, p[j].i-hi)
-	if beyond <= 6*noise+3*p[j].q+lineTolerance*math.Abs(p[j].i) {
-		return 0
-	}
-	if j >= 2 {
-		lo, hi := continued(&p[j-2], &p[j-1], p[j].vg)
-		if outside(p[j].i, lo, hi) <= lineTolerance {
-			return 0
-		}
-	}
-	if j+2 < len(p) {
-		lo, hi := continued(&p[j+1], &p[j+2], p[j].vg)
-		if outside(p[j].i, lo, hi) <= lineTolerance {
-			return 0
-		}
-	}
-	if math.Max(hi, p[j].i) < w.tiny {
-		return 0
-	}
-	if j+2 < len(p) && flatAfter(&p[j], &p[j+1], &p[j+2]) && p[j].i >= p[j-1].i && p[j].i <= p[j+1].i {
-		return 0 // the last step before the corner of a load line
-	}
-	if math.IsInf(e, 1) { // reads zero or less
-		return 10
-	}
-	return e
-}
-
-// flatAfter reports whether the curve rises from a to b but hardly from b to c.
-func flatAfter(a, b, c *point) bool {
-	return c.i-b.i < 0.2*(b.i-a.i)*(c.vg-b.vg)/(b.vg-a.vg)
+	w.pts = w.pts[:n]
 }
 
 // leastOfInterest is the current below which shape does not matter: leakage,
@@ -241,128 +196,54 @@ func (w *work) leastOfInterest() float64 {
 	return least / 100
 }
 
-// continued is where the curve lies at vg, outside a…b, when it goes on as
-// between them: straight in its root or in its logarithm.
-func continued(a, b *point, vg float64) (lo, hi float64) {
-	if !(b.vg > a.vg) {
-		return math.Min(a.i, b.i), math.Max(a.i, b.i)
-	}
-	t := (vg - a.vg) / (b.vg - a.vg)
-	ra, rb := math.Sqrt(math.Max(a.i, 0)), math.Sqrt(math.Max(b.i, 0))
-	r := math.Max(0, ra+t*(rb-ra))
-	lo, hi = r*r, r*r
-	if a.i > 0 && b.i > 0 {
-		l := a.i * math.Pow(b.i/a.i, t)
-		lo, hi = math.Min(lo, l), math.Max(hi, l)
-	}
-	return lo, hi
-}
-
-// displaced is how far, in gate voltage, point j lies from a current by the
-// slope of the root of the current about it.
-func (w *work) displaced(j int, i float64) float64 {
-	a, b := max(0, j-1), min(len(w.pts)-1, j+1)
-	if b == j {
-		a, b = max(0, j-2), j-1
-	}
-	rise := math.Sqrt(math.Max(0, w.pts[b].i)) - math.Sqrt(math.Max(0, w.pts[a].i))
-	if !(rise > 0) {
-		return math.Inf(1)
-	}
-	d := math.Sqrt(math.Max(0, w.pts[j].i)) - math.Sqrt(math.Max(0, i))
-	return math.Abs(d) * (w.pts[b].vg - w.pts[a].vg) / rise
-}
-
-// beyond is how far, in gate voltage, point j lies outside what its neighbours
-// leave it.
-func (w *work) beyond(j int) float64 {
-	p := w.pts
-	var lo, hi float64
-	if j == len(p)-1 {
-		lo, hi = continued(&p[j-2], &p[j-1], p[j].vg)
-		lo = math.Min(lo, p[j-1].i)
-	} else {
-		lo, hi = w.between(&p[j-1], &p[j+1], p[j].vg)
-	}
-	return w.displaced(j, math.Min(math.Max(p[j].i, lo), hi))
-}
-
-// roughness is the robust scatter, in gate voltage, of points about the middle
-// of the range that their neighbours leave them.
-func (w *work) roughness() float64 {
-	r := make([]float64, 0, len(w.pts))
-	for j := 1; j < len(w.pts)-1; j++ {
-		lo, hi := w.between(&w.pts[j-1], &w.pts[j+1], w.pts[j].vg)
-		if !(lo > 5*w.pts[j].q) || !(lo > 0) {
-			continue
-		}
-		if d := w.displaced(j, math.Sqrt(lo*hi)); !math.IsInf(d, 0) {
-			r = append(r, d)
-		}
-	}
-	if len(r) == 0 {
-		return 0
-	}
-	return 1.4826 * median(r)
-}
-
-// nameFault finds out what is wrong with a point that does not fit: ten times
+// nameFault finds out what is wrong with a point that was left out: ten times
 // too much or too little, a jump at a range change, or merely out of line.
-func (w *work) nameFault(j int) (code, text string) {
-	p := &w.pts[j]
+func (w *work) nameFault(p *point) (code, text string) {
 	for _, f := range [...]float64{10, 0.1} {
 		said := "ten times what it should"
 		if f < 1 {
 			said = "a tenth of what it should"
 		}
-		if w.fits(j, p.vg, p.i/f) {
+		if w.fits(p, p.vg, p.i/f) {
 			return CodeDecadeSpike, "the current reads " + amps(p.i) + ", " + said
 		}
-		if w.fits(j, p.vg/f, p.i) {
+		if w.fits(p, p.vg/f, p.i) {
 			return CodeDecadeSpike, "the gate voltage reads " + volts(w.gate*p.vg) + ", " + said
 		}
 	}
-	if w.rangeChange(j) {
+	if w.rangeChange(p) {
 		return CodeRangeGlitch, "the current reads " + amps(p.i) + " where the meter changed its range"
 	}
 	return CodeOutOfLine, "the current reads " + amps(p.i) + ", which contradicts the points around it"
 }
 
-// fits reports whether a point at vg with current i would lie between the other
-// points, within 8 %.
-func (w *work) fits(j int, vg, i float64) bool {
+// fits reports whether p at gate voltage vg with current i would lie between
+// the points, within 8 %.
+func (w *work) fits(p *point, vg, i float64) bool {
 	const tolerance = 0.08
-	p := w.pts
-	a, b := -1, -1
-	for k := range p {
-		if k == j {
-			continue
-		}
-		if p[k].vg <= vg {
-			a = k
-		} else {
-			b = k
-			break
-		}
-	}
-	if b < 0 && a > 0 {
+	pts := w.pts
+	b := w.after(vg)
+	a := b - 1
+	switch {
+	case a < 0 || b == len(pts) && a < 1:
+		return false
+	case b == len(pts):
 		// Past the end by no more than a few steps: between the last current and
 		// the continued exponential.
 		c := a - 1
-		if c == j {
-			c--
-		}
-		if c < 0 || !(p[c].i > 0) || !(p[a].vg > p[c].vg) || vg-p[a].vg > 3*(p[a].vg-p[c].vg) {
+		if !(pts[c].i > 0) || !(pts[a].vg > pts[c].vg) || vg-pts[a].vg > 3*(pts[a].vg-pts[c].vg) {
 			return false
 		}
-		hi := p[a].i * math.Exp(math.Log(p[a].i/p[c].i)*(vg-p[a].vg)/(p[a].vg-p[c].vg))
-		return outside(i, p[a].i, hi) < tolerance
+		hi := pts[a].i * math.Exp(math.Log(pts[a].i/pts[c].i)*(vg-pts[a].vg)/(pts[a].vg-pts[c].vg))
+		return outside(i, pts[a].i, hi) < tolerance
 	}
-	if a < 0 || b < 0 {
-		return false
-	}
-	lo, hi := w.between(&p[a], &p[b], vg)
-	return i > 3*p[j].q && outside(i, lo, hi) < tolerance
+	lo, hi := w.between(&pts[a], &pts[b], vg)
+	return i > 3*p.q && outside(i, lo, hi) < tolerance
+}
+
+// after is the index of the first point above gate voltage vg.
+func (w *work) after(vg float64) int {
+	return sort.Search(len(w.pts), func(j int) bool { return w.pts[j].vg > vg })
 }
 
 // rangeReach is how near, in points, a change of range must be to be blamed: the
@@ -370,20 +251,19 @@ func (w *work) fits(j int, vg, i float64) bool {
 const rangeReach = quantaSpan + 1
 
 // rangeChange reports whether the step of the display, or the range by the
-// accuracy statement, changes near point j.
-func (w *work) rangeChange(j int) bool {
+// accuracy statement, changes near p, which was left out.
+func (w *work) rangeChange(p *point) bool {
 	lo, hi := math.Inf(1), 0.0
 	tops := [2]float64{math.Inf(1), 0}
 	ranges, unit := w.s.Current, 1.0
 	if w.onLoad || !w.ammeter {
 		ranges, unit = w.s.Load, w.s.RL
 	}
-	for k := max(0, j-rangeReach); k <= min(len(w.pts)-1, j+rangeReach); k++ {
+	at := w.after(p.vg)
+	for k := max(0, at-rangeReach); k < min(len(w.pts), at+rangeReach); k++ {
 		p := &w.pts[k]
-		if k != j { // its own digits and range may be those of the fault
-			t := rangeFor(ranges, p.i*unit).Top
-			tops[0], tops[1] = math.Min(tops[0], t), math.Max(tops[1], t)
-		}
+		t := rangeFor(ranges, p.i*unit).Top
+		tops[0], tops[1] = math.Min(tops[0], t), math.Max(tops[1], t)
 		if p.q > 0 {
 			lo, hi = math.Min(lo, p.q), math.Max(hi, p.q)
 		}

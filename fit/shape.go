@@ -31,8 +31,8 @@ const (
 	plateau  = 0.9
 )
 
-// shape fills in what the whole-curve fit t tells.
-func (w *work) shape(t *whole, r *Result) Shape {
+// shapeOf is what the whole-curve fit t tells beside its thresholds.
+func (w *work) shapeOf(t *whole) Shape {
 	s := NoShape()
 	s.Misfit = t.misfit
 	n := len(t.vg)

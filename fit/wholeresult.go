@@ -49,7 +49,7 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	out.Beta.UAbsolute = rss(out.Beta.UAbsolute, beta*model[1])
 	out.Theta = w.withGain(Quantity{Value: t.p[parTheta], U: random[3], UBetween: math.NaN(), N: n}, top, 0, 1)
 	out.Theta.UAbsolute = rss(out.Theta.UAbsolute, model[3])
-	r.Shape = w.shape(t, r)
+	r.Shape = w.shapeOf(t)
 	return out, true
 }
 

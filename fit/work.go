@@ -24,17 +24,20 @@ type work struct {
 	byLoad  bool    // there are currents from R_L and V_L
 	byDrain bool    // there are currents from R_L and V_DD-V_D, in place of V_L
 	ratio   float64 // ammeter current over load current, 1 when there is no telling
+	warm    float64 // 1/A², by how much that ratio changes with the square of the load current
 	doubt   float64 // relative standard uncertainty because two currents disagree
 	onLoad  bool    // the currents used are on the scale of V_L/R_L, not of the ammeter
 	vdd     float64 // V, supply; NaN when not known
 	vddRead bool    // V_DD was read point by point
 	least   float64 // V, lower bound of the supply from the greatest V_L; NaN
 
-	ties     bool    // several points share a gate reading: its display is coarse against the steps
-	base     float64 // A, smallest current of the curve if above zero: leakage
-	tiny     float64 // A, current below which no spikes are looked for
-	hopeless bool    // more points contradict each other than can be dropped
-	falling  bool    // the current falls as the gate is driven harder
+	ties    bool    // several points share a gate reading: its display is coarse against the steps
+	base    float64 // A, smallest current of the curve if above zero: leakage
+	tiny    float64 // A, current below which no spikes are looked for
+	falling bool    // the current falls as the gate is driven harder
+	odd     int     // points left out that contradict a rising curve without a sign of a leftover
+	jumps   string  // where the current jumps at constant gate voltage, a sentence
+	limit   float64 // V, least displacement of a point that is called a fault; 0: not yet known
 
 	pts       []point      // usable points in the order in which the part turns on
 	grid      float64      // V, step that the digits of the gate readings show; 0: none
@@ -59,10 +62,16 @@ type point struct {
 	vds float64 // V, NaN when not known
 	rt  float64 // √i, of a current above zero
 	ln  float64 // ln i, of a current above zero
+	lf  float64 // ln of what flows above the leakage; NaN: nothing that stands out
 
 	a, l   float64 // A, by ammeter and by load resistor; NaN: none
 	qa, ql float64 // A, one count of these
 	na, nl float64 // A, stated noise of these
+	wa, wl float64 // A, what these may be off by; for judging faults only, see [work.room]
+
+	room     float64 // A, what i may be off by, for judging faults only: at least u
+	disputed bool    // the two readings disagree
+	load     bool    // i is that of the load resistor
 }
 
 // at reads element k, NaN beyond the slice.
@@ -272,37 +281,56 @@ func (w *work) counts() {
 		return
 	}
 	x, q, place := make([]float64, n), make([]float64, n), make([]int8, n)
-	each := func(fewest int, read func(p *point) float64, set func(p *point, q float64)) {
+	each := func(fewest int, read func(p *point) float64, set func(p *point, q, last float64)) {
 		for j := range w.pts {
 			x[j] = read(&w.pts[j])
 		}
-		clear(q)
-		if n >= fewest {
-			quanta(x, q, place)
+		quanta(x, q, place)
+		if n < fewest {
+			clear(q)
 		}
 		for j := range w.pts {
-			set(&w.pts[j], q[j])
+			set(&w.pts[j], q[j], lastDigit(place[j:min(n, j+3)]))
 		}
 	}
 	rl := w.s.RL
 	if w.ammeter {
-		each(fewestForDigits, func(p *point) float64 { return at(w.c.Id, p.k) }, func(p *point, q float64) {
+		each(fewestForDigits, func(p *point) float64 { return at(w.c.Id, p.k) }, func(p *point, q, last float64) {
 			p.qa = max(q, rangeFor(w.s.Current, p.a).Resolution)
+			p.wa = max(p.qa, random(last, p.na))
 		})
 	}
 	if w.byLoad {
-		each(fewestForDigits, func(p *point) float64 { return at(w.c.Vl, p.k) }, func(p *point, q float64) {
+		each(fewestForDigits, func(p *point) float64 { return at(w.c.Vl, p.k) }, func(p *point, q, last float64) {
 			p.ql = max(q, rangeFor(w.s.Load, p.l*rl).Resolution) / rl
+			p.wl = max(p.ql, random(last/rl, p.nl))
 		})
 	}
 	if w.byDrain {
-		each(fewestForDigits, func(p *point) float64 { return w.drainAt(p.k) }, func(p *point, q float64) {
-			p.ql = max(q, rangeFor(w.s.Drain, w.drainAt(p.k)).Resolution) / rl
+		each(fewestForDigits, func(p *point) float64 { return w.drainAt(p.k) }, func(p *point, q, last float64) {
+			v := w.drainAt(p.k)
+			p.ql = max(q, rangeFor(w.s.Drain, v).Resolution) / rl
+			// A difference of two large voltages: their noise is what counts.
+			p.wl = rss(max(p.ql, random(last/rl, p.nl)), typicalNoise*v/rl)
 		})
 	}
-	each(1, func(p *point) float64 { return p.vg }, func(p *point, q float64) {
+	each(1, func(p *point) float64 { return p.vg }, func(p *point, q, _ float64) {
 		a := rangeFor(w.s.Gate, p.vg)
 		p.ux = random(a.Resolution, a.Noise)
 		w.grid = max(w.grid, q)
 	})
+}
+
+// lastDigit is the step of the last digit that the first of some readings shows,
+// or a later one where it is finer: zeros at the end hide the digits of single
+// readings. 0: not to be told.
+func lastDigit(place []int8) float64 {
+	m := int8(-128)
+	for k, p := range place {
+		if p == 127 || k == 0 && p == -128 {
+			return 0
+		}
+		m = max(m, p)
+	}
+	return pow10(-int(m))
 }
