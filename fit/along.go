@@ -50,7 +50,10 @@ const (
 	rareFoot = 8
 )
 
-var alongOptions = lsq.Options{MaxEvals: 40}
+// alongOptions stop a fit when every parameter is within 0.3 % of its standard error
+// of the minimum (a cosine of 1e-3, ten points); what is left of that in the reading
+// is nothing beside its scatter.
+var alongOptions = lsq.Options{MaxEvals: 40, Cosine: 1e-3}
 
 // depth is how far below the threshold x = V_GS - V_T lies, V: smoothly from 0
 // well above it.
