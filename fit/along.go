@@ -157,7 +157,7 @@ func (t *along) begin() bool {
 	case t.squeezed:
 		t.mean[parTheta], t.sd[parTheta] = usualTheta, squeezedTheta
 		if wh != nil {
-			t.mean[parTheta], t.sd[parTheta] = wh.p[parTheta], rss(squeezedTheta, wh.spread(parTheta))
+			t.mean[parTheta], t.sd[parTheta] = wh.p[parTheta], rss(squeezedTheta, wh.toldBy(parTheta))
 		}
 		t.mean[parBeta], t.sd[parBeta] = math.Log(usualGain), usualGainSpread
 		t.free = append(t.free, parLambda, parTop)
@@ -223,8 +223,8 @@ func (t *along) random(j int) float64 {
 	return rss(rss(math.Max(p.u, p.q/2), t.share*p.i), t.slope[j]*rss(t.noise, p.ux))
 }
 
-// spread is the standard deviation of a parameter as the whole curve tells it.
-func (t *whole) spread(par int) float64 {
+// toldBy is the standard deviation of a parameter as the whole curve tells it.
+func (t *whole) toldBy(par int) float64 {
 	for f, k := range t.free {
 		if k == par {
 			return math.Sqrt(t.got.Cov(f, f))

@@ -39,6 +39,8 @@ const (
 	// likewise.
 	weakTheta  = 1.0
 	weakLambda = 0.05
+	// takenOff is the share of the greatest current above which a leakage is taken off.
+	takenOff = 1e-6
 	// wellSaturated is how many times the overdrive the drain voltage must be for a
 	// point behind a load resistor that takes most of the supply to count (judgement).
 	wellSaturated = 2
@@ -117,6 +119,15 @@ func (w *work) layWhole() (*whole, bool) {
 	t.begin = t.p
 	if !t.chooseFoot(w) || !t.refit(w) {
 		return nil, false
+	}
+	// What flows with the channel off flows beside it when it is on.
+	if leak, _ := w.offCurrent(t); leak > takenOff*top {
+		for j := range t.i {
+			t.i[j] -= leak
+		}
+		if !t.chooseFoot(w) || !t.refit(w) {
+			return nil, false
+		}
 	}
 	for range int(mostOff * float64(len(t.vg))) {
 		k := t.farOff()
