@@ -36,6 +36,7 @@ type crossing struct {
 	v       float64 // V, n-channel sign; NaN: none
 	u       float64 // V, random part, interpolation included
 	gm      float64 // S, slope of the curve there
+	ugm     float64 // S, its random uncertainty where the reading was made along the model, else NaN
 	n       int     // points it rests on
 	count   int     // upward crossings
 	lo, hi  float64 // V, first and last upward crossing
@@ -47,7 +48,7 @@ type crossing struct {
 }
 
 func noCrossing() crossing {
-	return crossing{v: math.NaN(), u: math.NaN(), gm: math.NaN(), lo: math.NaN(), hi: math.NaN(), b: -1}
+	return crossing{v: math.NaN(), u: math.NaN(), gm: math.NaN(), ugm: math.NaN(), lo: math.NaN(), hi: math.NaN(), b: -1}
 }
 
 // gateAt finds the gate voltage at which the curve carries iref: V_GS(th) by

@@ -325,6 +325,10 @@ func (w *work) transconductances(r *Result, idle crossing) {
 	if math.IsNaN(idle.v) {
 		return
 	}
+	if idle.gm > 0 && idle.ugm > 0 {
+		r.GmIdle = w.withGain(Quantity{Value: idle.gm, U: idle.ugm, UBetween: math.NaN(), N: idle.n}, w.s.IdleCurrent, 1, 1)
+		return
+	}
 	j := 0
 	for j < n-1 && math.Abs(s.x[j+1]-idle.v) <= math.Abs(s.x[j]-idle.v) {
 		j++
