@@ -17,6 +17,9 @@ const (
 	krigeReach = 0.16 // V, over which what is left over changes (chosen on self-made smooth curves)
 	krigeUsual = 0.5e-3
 	krigeRange = 1.2 // standard deviation of its logarithm
+	// krigeShare is the same as krigeUsual where the curve is flat, as a share of the
+	// current: there it is the current that a model is wrong by.
+	krigeShare = 0.5e-3
 )
 
 // krigeSizes are the sizes tried, V.
@@ -27,7 +30,7 @@ type spreading struct {
 	x, r, s [2 * krigeSide]float64 // V: gate voltage, residual, its standard deviation
 	w       [2 * krigeSide]float64 // weight of each in the value
 	n       int
-	size    float64 // V, of what is left over
+	usual   float64 // V, size to expect of what is left over
 	k, l    [2 * krigeSide][2 * krigeSide]float64
 }
 
@@ -56,7 +59,6 @@ func (p *spreading) at(x float64) (value, u float64) {
 		like[m] = p.likelihood(a)
 		best = math.Max(best, like[m])
 	}
-	p.size = 0
 	for m, a := range krigeSizes {
 		share := math.Exp(like[m] - best)
 		if share < 1e-3 || math.IsNaN(share) {
@@ -78,7 +80,6 @@ func (p *spreading) at(x float64) (value, u float64) {
 		mean += share * v
 		second += share * v * v
 		vari += share * math.Max(0, left)
-		p.size += share * a
 	}
 	if !(sum > 0) {
 		return 0, 0
@@ -87,7 +88,6 @@ func (p *spreading) at(x float64) (value, u float64) {
 		p.w[i] = weights[i] / sum
 	}
 	mean /= sum
-	p.size /= sum
 	return mean, math.Sqrt(vari/sum + math.Max(0, second/sum-mean*mean))
 }
 
@@ -123,7 +123,7 @@ func (p *spreading) likelihood(a float64) float64 {
 		z[i] = v / p.l[i][i]
 		q += z[i] * z[i]
 	}
-	d := math.Log(a/krigeUsual) / krigeRange
+	d := math.Log(a/p.usual) / krigeRange
 	return -(q + logDet + d*d) / 2
 }
 

@@ -1,0 +1,6 @@
+package fit
+
+var unmetCells []struct {
+	why   string
+	cells map[string]string
+}
