@@ -37,6 +37,9 @@ const (
 	temper = 4
 	// alongPasses is how often the weights follow the fit.
 	alongPasses = 4
+	// settled is the change of the reading, V, below which the weights need not
+	// follow any more.
+	settled = 10e-6
 	// atEdge is how far outside the two points around it, as a share of their
 	// distance, a crossing may lie besides noise.
 	atEdge = 0.02
@@ -152,6 +155,7 @@ func (t *along) lay(rare float64) bool {
 		if math.IsNaN(v) {
 			return false
 		}
+		moved := math.Abs(v - t.at)
 		t.at = v
 		if pass < 1 {
 			continue
@@ -162,7 +166,11 @@ func (t *along) lay(rare float64) bool {
 				return false
 			}
 		}
-		t.doubt = math.Max(1, math.Min(t.doubt*math.Sqrt(t.fits()), mostDoubt))
+		before := t.doubt
+		t.doubt = math.Max(1, math.Min(before*math.Sqrt(t.fits()), mostDoubt))
+		if t.doubt == before && moved < settled {
+			break
+		}
 	}
 	return true
 }
@@ -254,6 +262,7 @@ func (t *along) read() (v, u, gm float64) {
 	}
 	gm = t.derive()
 	t.leftOver()
+	t.left.usual = rss(krigeUsual, krigeShare*t.iref/gm)
 	value, gap := t.left.at(t.at)
 	for k := range t.left.n {
 		j := t.place[k]
