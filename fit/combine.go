@@ -14,7 +14,7 @@ const (
 	// in the knee is not known better (judgements; the same limits call heating).
 	sweepsApart  = 3
 	sweepsLeast  = 0.5e-3
-	sweepsCoarse = 30e-3
+	sweepsCoarse = 20e-3
 )
 
 // Combine makes one result of the sweeps of a device. Each sweep was evaluated
