@@ -57,8 +57,8 @@ func Combine(rs []Result, dirs []string) Result {
 	for i := range rs {
 		r.GmRising = r.GmRising || rs[i].GmRising
 	}
+	r.VtBy = combineThresholds(rs, lead)
 	if len(rs) > 1 {
-		r.VtBy = combineThresholds(rs, lead)
 		r.Method = methodOf(rs, lead)
 		for _, k := range Keys {
 			if combineQuantity(&r, rs, k, lead) {

@@ -26,8 +26,7 @@ type faultFile struct {
 	from   string // dense curve of testdata/spice; "": by law
 	law    func(v float64) float64
 	bench  simBench
-	vto    float64
-	grid   []float64 // V above vto
+	grid   []float64 // V above the threshold of the card
 	down   []float64 // of a down sweep after it; nil: none
 	// by plants a fault in what the meters would read: the gate voltage at which the
 	// curve is looked up (late: in the down sweep), and the readings themselves.
