@@ -1,7 +1,7 @@
 package fit
 
 // Choose makes the extrapolated threshold of one method the one that is shown:
-// "sqrt", "linear" or "ratio"; "current" shows none, "auto" leaves the choice
+// "curve", "sqrt", "linear" or "ratio"; "current" shows none, "auto" leaves the choice
 // by region as it is. Where the method is not valid for the points, the
 // extrapolated threshold is taken back and a warning says so.
 func (r *Result) Choose(method string) {
@@ -9,16 +9,13 @@ func (r *Result) Choose(method string) {
 		return
 	}
 	had := r.Vt.Ok()
-	r.Vt, r.Beta = None(), None()
-	if method != "ratio" {
-		r.Theta = None()
-	}
+	r.Vt, r.Beta, r.Theta = None(), None(), None()
 	r.Method = "current"
 	if method == "current" {
 		return
 	}
 	if t, ok := r.VtBy[method]; ok {
-		r.Vt, r.Beta, r.Method = t.Vt, t.Beta, method
+		r.Vt, r.Beta, r.Theta, r.Method = t.Vt, t.Beta, t.Theta, method
 		return
 	}
 	if had || r.State == Measured {

@@ -51,10 +51,16 @@ type resistive struct {
 	top         float64   // 95th percentile of g
 }
 
+// unknownDrain reports whether a small drain voltage is not known well enough: it
+// was not read at the drain, and what the ammeter takes of it is not known.
+func (w *work) unknownDrain() bool {
+	return w.s.Circuit == Fixed && len(w.c.Vd) == 0 && math.IsNaN(w.s.Burden) && w.s.Vds < unreadVds
+}
+
 // resistiveCurve prepares the two methods for a small fixed drain voltage; it
 // declines where the voltage at the drain is not known well enough.
 func (w *work) resistiveCurve() (*resistive, bool) {
-	if len(w.c.Vd) == 0 && math.IsNaN(w.s.Burden) && w.s.Vds < unreadVds {
+	if w.unknownDrain() {
 		w.warn(CodeBenchLimited, "V_DS is below 1 V, was not read at the drain, and the ammeter's burden is not known (--ammeter none says that there is none, a bench file says how much): no extrapolated threshold.")
 		return nil, false
 	}

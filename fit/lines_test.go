@@ -19,11 +19,12 @@ func TestSquareRootLine(t *testing.T) {
 		for _, vdd := range []float64{b.vdd, nan()} {
 			s.Vdd = vdd
 			r := One(c, s)
-			near(t, "V_T", r.Vt.Value, 3, 1e-6)
-			near(t, "β", r.Beta.Value, 2, 1e-5)
-			if r.Method != "sqrt" || len(r.VtBy) != 1 {
+			if r.Method != "curve" || len(r.VtBy) != 2 {
 				t.Errorf("%s: method %q, %d methods", b.circuit, r.Method, len(r.VtBy))
 			}
+			r.Choose("sqrt")
+			near(t, "V_T", r.Vt.Value, 3, 1e-6)
+			near(t, "β", r.Beta.Value, 2, 1e-5)
 			got := r.VtBy["sqrt"]
 			if got.To-got.From != r.Vt.N || r.Vt.N < leastOnLine {
 				t.Errorf("points %d…%d, n %d", got.From, got.To, r.Vt.N)
@@ -38,6 +39,7 @@ func TestSquareRootBias(t *testing.T) {
 	d := simDevice{law: squareLaw, vt: 3, beta: 2, theta: 0.1}
 	c, s := sweepOf(d, simBench{circuit: Diode}, 2, 4.5, 0.03)
 	r := One(c, s)
+	r.Choose("sqrt")
 	if e := r.Vt.Value - 3; e > 0 || e < -12.2e-3 {
 		t.Errorf("off by %.2f mV", 1e3*e)
 	}
@@ -151,7 +153,7 @@ func TestRatio(t *testing.T) {
 		d := simDevice{law: squareLaw, vt: 3, beta: 2, theta: theta}
 		c, s := sweepOf(d, simBench{circuit: Fixed, vds: 0.05}, 2, 6, 0.03)
 		r := One(c, s)
-		if r.Method != "ratio" {
+		if r.Choose("ratio"); r.Method != "ratio" {
 			t.Fatalf("θ %g: method %q, codes %s", theta, r.Method, codesOf(r))
 		}
 		// The parabolas' own bias against the bent curve is left.
@@ -163,6 +165,7 @@ func TestRatio(t *testing.T) {
 	d := simDevice{law: squareLaw, vt: 3, beta: 2, theta: 0.1, rs: 0.1}
 	c, s := sweepOf(d, simBench{circuit: Fixed, vds: 0.05}, 2, 6, 0.03)
 	r := One(c, s)
+	r.Choose("ratio")
 	near(t, "V_T with R_S", r.Vt.Value, 3, 5e-3)
 	near(t, "θ + β R_S", r.Theta.Value, 0.3, 0.03)
 }
@@ -178,6 +181,7 @@ func TestAbsoluteUncertaintyOfTheLine(t *testing.T) {
 	s.Gate = []Accuracy{{Top: 6, Percent: 0.5, Resolution: 1e-3}}
 	s.Current = []Accuracy{{Top: 10, Percent: 2, Resolution: 1e-6}}
 	r := One(c, s)
+	r.Choose("sqrt")
 	if !(r.Vt.UAbsolute > 8.66e-3 && r.Vt.UAbsolute < 11e-3) {
 		t.Errorf("absolute u(V_T) %g V", r.Vt.UAbsolute)
 	}

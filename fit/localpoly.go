@@ -14,7 +14,7 @@ const maxDegree = 3
 // data-fitting with a digital computer", J. SIAM 5 (1957) 74–88 (from memory).
 // On a uniform grid with equal weights it is the smoothing and differentiation
 // of A. Savitzky and M. J. E. Golay, Anal. Chem. 36 (1964) 1627–1639.
-// Checked: TestSavitzkyGolay, TestPolyExact.
+// Checked: TestSavitzkyGolay, TestPolyExact, TestPolyNIST.
 type poly struct {
 	x, w   []float64 // abscissas and weights (nil: all one); not copied
 	degree int

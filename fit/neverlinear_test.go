@@ -35,11 +35,11 @@ func TestNeverLinear(t *testing.T) {
 			if q.Has(CodeSubThresholdOnly) {
 				n.subThreshold++
 			}
-			switch q.Method {
-			case "sqrt":
+			if line, ok := q.VtBy["sqrt"]; ok {
 				n.sqrt++
-				worst = math.Max(worst, math.Abs(q.Vt.Value-d.vt))
-			case "ratio":
+				worst = math.Max(worst, math.Abs(line.Vt.Value-d.vt))
+			}
+			if _, ok := q.VtBy["ratio"]; ok {
 				n.ratio++
 			}
 		}

@@ -205,43 +205,55 @@ func (w *work) tellCrossing(c crossing, i float64) (why string) {
 }
 
 // extrapolated fills in the thresholds that are valid in the region the points
-// are in, and chooses the one to show: the ratio where the channel is a
-// resistor, the square-root line where it is saturated.
+// are in, and chooses the one to show: the model laid through the whole curve; where
+// there is none, the ratio where the channel is a resistor and the square-root line
+// where it is saturated.
 func (w *work) extrapolated(r *Result) {
 	if r.Vgsth.Ok() || r.VgsIdle.Ok() {
 		r.Method = "current"
 	}
 	set := func(method string, t Threshold) {
 		if r.VtBy == nil {
-			r.VtBy = make(map[string]Threshold, 2)
+			r.VtBy = make(map[string]Threshold, 3)
 		}
 		r.VtBy[method] = t
-		r.Vt, r.Beta, r.Method = t.Vt, t.Beta, method
+		r.Vt, r.Beta, r.Theta, r.Method = t.Vt, t.Beta, t.Theta, method
 	}
-	switch {
-	case w.s.Circuit == NoCircuit:
+	if w.s.Circuit == NoCircuit {
 		w.warn(CodeNoCircuit, "The circuit is not given: constant-current values only.")
-	case w.s.Circuit == Fixed && w.fixedVds() < unreadVds:
-		if never, saturated := w.neverLinear(); never {
-			if t, ok := w.squareRoot(); saturated && ok {
-				set("sqrt", t)
-			}
-			return
-		}
-		curve, ok := w.resistiveCurve()
-		if !ok {
-			return
-		}
-		if t, ok := w.tangent(curve); ok {
-			set("linear", t)
-		}
-		if t, theta, ok := w.ratioMethod(curve); ok {
-			set("ratio", t)
-			r.Theta = theta
-		}
-	default:
+		return
+	}
+	small := w.s.Circuit == Fixed && w.fixedVds() < unreadVds
+	never, root := false, true
+	if small {
+		never, root = w.neverLinear()
+	}
+	if small && !never {
+		w.resistiveThresholds(set)
+	} else if root {
 		if t, ok := w.squareRoot(); ok {
+			t.Theta = None()
 			set("sqrt", t)
 		}
+	}
+	if t, ok := w.curveThreshold(r); ok {
+		set("curve", t)
+	}
+	r.Levels = w.levels()
+}
+
+// resistiveThresholds are those of a channel that is a resistor.
+func (w *work) resistiveThresholds(set func(string, Threshold)) {
+	curve, ok := w.resistiveCurve()
+	if !ok {
+		return
+	}
+	if t, ok := w.tangent(curve); ok {
+		t.Theta = None()
+		set("linear", t)
+	}
+	if t, theta, ok := w.ratioMethod(curve); ok {
+		t.Theta = theta
+		set("ratio", t)
 	}
 }

@@ -92,6 +92,7 @@ type Result struct {
 	Method    string               // behind Vt: "sqrt", "linear", "ratio" or "curve"; "current" when there is no Vt
 	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
 	GmRising  bool                 // GmMax lies at the end of the sweep: a longer one would give more
+	Shape     Shape                // of the curve, beside its thresholds
 	Crossings int                  // upward crossings of the test current
 	Levels    []Level              // the curve itself: gate voltages at the currents of [LevelCurrents] inside the sweep, ascending by current
 	LeftOut   []LeftOut            // ascending by Index
@@ -113,16 +114,17 @@ var LevelCurrents = []float64{
 
 // Threshold is one extrapolated threshold with the gain factor from the same line.
 type Threshold struct {
-	Vt   Quantity // V
-	Beta Quantity // A/V²
-	From int      // first point used, index of the cleaned curve
-	To   int      // one past the last
+	Vt    Quantity // V
+	Beta  Quantity // A/V²
+	Theta Quantity // 1/V; None where the method has none
+	From  int      // first point used, index of the cleaned curve
+	To    int      // one past the last
 }
 
 // NewResult is a result with nothing in it yet: every quantity [None].
 func NewResult() Result {
 	n := None()
-	return Result{Vgsth: n, VgsIdle: n, Vt: n, Beta: n, Theta: n, GmMax: n, GmIdle: n, Idss: n}
+	return Result{Vgsth: n, VgsIdle: n, Vt: n, Beta: n, Theta: n, GmMax: n, GmIdle: n, Idss: n, Shape: NoShape()}
 }
 
 // Key names one quantity of a Result with its unit, as scripts see it.

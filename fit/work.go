@@ -44,6 +44,9 @@ type work struct {
 	poly      poly         // scratch
 	win       window       // scratch
 	residuals [][2]float64 // squares and their known parts, V²; a known part below zero: none
+	model     *whole       // the transfer model laid through the curve; nil: none
+	laid      bool         // it was tried
+	along     along        // the model near a crossing, scratch
 	left      []LeftOut
 	warns     []Warning
 }

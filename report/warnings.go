@@ -14,7 +14,7 @@ import (
 // inWarnings are the names of quantities as the sentences about a lot have
 // them, before the colon of what they say.
 var inWarnings = regexp.MustCompile(`(V_GS\(th\)|gate bias at the idle current|extrapolated threshold|gain factor|mobility degradation|` +
-	`largest transconductance|transconductance at the idle current|drain leakage|gate span from the test current to the idle current): `)
+	`largest transconductance|transconductance at the idle current|drain leakage|gate span from the test current to the idle current|the whole curve): `)
 
 // haveValue is the one number in which such sentences of one lot may differ and
 // still be told together.

@@ -8,6 +8,7 @@ import (
 	"strings"
 
 	"gatesill/fit"
+	"gatesill/fit/lot"
 	"gatesill/store/record"
 )
 
@@ -29,10 +30,11 @@ var keyInfos = map[fit.Key]KeyInfo{
 	fit.KeyGmIdle:  {"g_m(idle)", "S", "S", "transconductance at the idle current"},
 	fit.KeyIdss:    {"I_D(off)", "A", "A", "drain leakage"},
 	keySpan:        {"gate span", "V", "V", "gate span from the test current to the idle current"},
+	lot.KeyCurve:   {"curve", "V", "V", "departure of the curve from what threshold and gain let expect"},
 }
 
-// keySpan is a quantity that only limits of a spread know.
-const keySpan fit.Key = "gate_span_V"
+// keySpan is a quantity that only limits of a spread know, as is [lot.KeyCurve].
+const keySpan = lot.KeySpan
 
 // KeysIn lists the keys of a map by quantity in the order in which they are
 // shown: those of fit.Keys first, then the others by name.

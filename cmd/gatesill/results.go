@@ -41,9 +41,11 @@ func spreadCmd(env *job.Env) *cobra.Command {
 	cmd := &cobra.Command{
 		Use: "spread LOT", Short: "What the lot has in common, and which devices stand apart",
 		Long: `Shows median and spread of every quantity, and the devices that stand apart with
-one sentence each: those that are broken or leak, and those outside the family.
-The default limit depends on the size of the lot, so that at most 2 % of clean
-lots get any false flag.`,
+one sentence each: those that are broken or leak, and those outside the family by
+gate voltage, by gain (gain factor, transconductance at the idle current) or by
+the whole curve, where it is not what threshold and gain let expect. The default
+limits depend on the size of the lot and on how many of these its devices have,
+so that at most 2 % of clean lots get any false flag.`,
 		Example: `  gatesill spread bag1
   gatesill spread bag1 --limit 6 --fail --json`,
 		Args: exactly(1),

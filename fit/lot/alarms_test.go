@@ -73,6 +73,20 @@ func TestTablesAreSmooth(t *testing.T) {
 			}
 		}
 	}
+	for q := 1; q <= 70; q++ {
+		for n := fewest; n < 30_000; n += 1 + n/50 {
+			k := curveLimit(n, q)
+			if !(k > 3.9 && k < 30) {
+				t.Errorf("limit for n=%d, %d departures: %v", n, q, k)
+			}
+			if more := curveLimit(n, q+1); more < k*0.999 {
+				t.Errorf("limit for n=%d: %v for %d departures, %v for one more", n, k, q, more)
+			}
+			if next := curveLimit(n+2, q); next > 1.03*k {
+				t.Errorf("limit for %d departures rises from %v at n=%d to %v at %d", q, k, n, next, n+2)
+			}
+		}
+	}
 	if k := DefaultLimit(7, 1); !math.IsNaN(k) {
 		t.Errorf("limit for 7 devices: %v, want none", k)
 	}
@@ -86,13 +100,17 @@ type lotKind struct {
 	draw func(*rand.Rand) float64
 	dies bool // physical model: quantities hang together
 
-	straight float64 // of dies: spread of the gain factor itself like a normal distribution; 0: of its logarithm, 5 %
+	family   *simFamily // curves, and quantities that hang together by them
+	straight float64    // of dies: spread of the gain factor itself like a normal distribution; 0: of its logarithm, 5 %
 }
 
 var oneKey = []fit.Key{fit.KeyVgsth}
 var fiveKeys = []fit.Key{fit.KeyVgsth, fit.KeyVgsIdle, fit.KeyBeta, fit.KeyGmMax, fit.KeyGmIdle}
 
 func (k lotKind) lot(rng *rand.Rand, n int) []Device {
+	if k.family != nil {
+		return k.family.lot(rng, n, nil)
+	}
 	devs := make([]Device, n)
 	for i := range devs {
 		switch {
@@ -147,12 +165,18 @@ func TestFalseAlarms(t *testing.T) {
 		{name: "five independent quantities", keys: fiveKeys, draw: normal},
 		{name: "five quantities of one model", dies: true},
 		{name: "five of one model, gain factor not in the logarithm", straight: 0.08},
+		{name: "whole curves", family: &usual},
+		{name: "whole curves that differ by reading errors of unknown u", family: &white},
 		{name: "one quantity in steps of one sd", keys: oneKey, step: 1, draw: normal},
 		{name: "one quantity in steps of 0.3 sd", keys: oneKey, step: 0.3, draw: normal},
 	}
 	for _, k := range kinds {
-		for _, n := range []int{4, 7, 8, 10, 13, 26, 40, 70, 250} {
-			runs := min(1000, 30_000/n)
+		sizes, most := []int{4, 7, 8, 10, 13, 26, 40, 70, 250}, 1000
+		if k.family != nil { // these take longer
+			sizes, most = []int{4, 6, 8, 10, 20, 40, 120}, 500
+		}
+		for _, n := range sizes {
+			runs := min(most, 30*most/n)
 			either, split := k.alarms(n, runs)
 			bound := 0.02*float64(runs) + 3.1*math.Sqrt(0.02*0.98*float64(runs))
 			if float64(either) > bound {
@@ -178,19 +202,28 @@ func TestLongFalseAlarms(t *testing.T) {
 		{name: "steps of 0.1 sd", keys: oneKey, step: 0.1, draw: normal},
 		{name: "t5 tails", keys: oneKey, draw: t5},
 		{name: "uniform", keys: oneKey, draw: (*rand.Rand).Float64},
+		{name: "curves of a careful bench", family: &usual},
+		{name: "curves from far below threshold", family: &wide},
+		{name: "curves of independent errors", family: &white},
+		{name: "curves on a poor bench", family: &poor},
+		{name: "curves of t5 tails", family: &heavy},
 	}
+	allSizes := []int{4, 5, 6, 7, 8, 9, 10, 11, 12, 15, 20, 26, 30, 36, 40, 50, 55, 70, 90, 120, 400, 1500, 5000}
 	for _, k := range kinds {
 		if only != "1" && !strings.HasPrefix(k.name, only) {
 			continue
 		}
-		line := k.name + ":"
-		for _, n := range []int{4, 5, 6, 7, 8, 9, 10, 11, 12, 15, 20, 26, 30, 36, 40, 50, 55, 70, 90, 120, 400, 1500, 5000} {
+		line, sizes := k.name+":", allSizes
+		if k.family != nil {
+			sizes = []int{4, 6, 8, 10, 11, 20, 40, 120, 500}
+		}
+		for _, n := range sizes {
 			runs := max(1000, min(20_000, 2_000_000/n))
 			either, split := k.alarms(n, runs)
 			N := float64(runs)
 			line += fmt.Sprintf("  n=%d %.2f (%.2f)", n, 100*float64(either)/N, 100*float64(split)/N)
 			bound := 0.02*N + 3.1*math.Sqrt(0.02*0.98*N)
-			if k.name != "t5 tails" && k.name != "uniform" && float64(either) > bound {
+			if !strings.HasSuffix(k.name, "t5 tails") && k.name != "uniform" && float64(either) > bound {
 				t.Errorf("%s, n=%d: %d of %d lots alarmed, allowed %.0f", k.name, n, either, runs, bound)
 			}
 		}

@@ -3,6 +3,7 @@ package lot
 import (
 	"math"
 	"slices"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/stats"
@@ -15,11 +16,13 @@ import (
 // half counts the same at every size.
 type column struct {
 	key    fit.Key
+	at     float64 // A, of a departure of the curve; 0: of another quantity
 	log    bool
 	sign   float64   // -1 for the voltages of p-channel parts
 	v      []float64 // by device, as it is, in the unit of the quantity
 	x      []float64 // by device, on the judged scale; NaN: no value
 	u      []float64 // by device, standard uncertainty within the session; 0: not known
+	slack  []float64 // by device, by how much x may be off besides; nil: not at all
 	above  []bool    // by device: never reaches the current; nil: none can
 	step   float64   // of the readings, 0: none seen
 	least  float64   // spread below which nothing is told apart: a microvolt, or a millionth of a gain
@@ -129,6 +132,9 @@ func isGain(k fit.Key) bool {
 
 // isThreshold reports whether a quantity is a gate voltage at a current.
 func isThreshold(k fit.Key) bool { return k == fit.KeyVgsth || k == fit.KeyVgsIdle }
+
+// isCurve reports whether a quantity is the departure of the curve at a current.
+func isCurve(k fit.Key) bool { return strings.HasPrefix(string(k), "curve_at_") }
 
 // counts reports whether a device takes part in the statistics of its lot.
 func counts(d *Device) bool {

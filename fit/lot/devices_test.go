@@ -116,6 +116,13 @@ func anyDevices(t *rapid.T) []Device {
 			q.Value = number.Draw(t, "value")
 			q.U = number.Draw(t, "u")
 		}
+		for _, i := range rapid.SliceOfN(rapid.SampledFrom(append([]float64{0, 3, math.NaN(), math.Inf(1)}, fit.LevelCurrents[:8]...)), 0, 12).Draw(t, "currents") {
+			l := fit.Level{I: i, Vg: number.Draw(t, "level"), U: number.Draw(t, "u of level")}
+			if rapid.Bool().Draw(t, "rising") {
+				l.Vg = 3 + 0.1*math.Log(1e5*i)
+			}
+			d.Result.Levels = append(d.Result.Levels, l)
+		}
 	}
 	return devs
 }

@@ -15,7 +15,9 @@ import (
 // fixed below, and k was found by simulation so that all three together, over
 // all quantities looked at, happen in 1.9 % of normal lots: see tables.go and
 // TestLongTables, which makes the tables again. Quantities are taken as
-// independent, which errs on the side of fewer flags where they are not.
+// independent, which errs on the side of fewer flags where they are not: gain
+// factor and transconductance mostly say the same, and counting them as one would
+// give limits 7 % nearer in lots of ten and 3 % in lots of forty.
 const (
 	totalLevel = 0.019 // of any false alarm in a lot
 	splitLevel = 0.004 // of these, of being called two populations
@@ -42,31 +44,48 @@ func DefaultLimit(n, quantities int) float64 {
 	if n < fewest {
 		return math.NaN()
 	}
-	return lookup(limitTable, n, quantities)
+	return lookup(limitTable, n, float64(quantities-1))
+}
+
+// curveLimit is the limit for one departure of the curve, of that many quantities
+// in all with each departure taken as one. Lots are not parted by the curve, so it
+// has the share of the parting too.
+func curveLimit(n, quantities int) float64 {
+	if n < fewest {
+		return math.NaN()
+	}
+	// Columns for 2, 4, 8 ... quantities.
+	return lookup(curveTable, n, math.Log2(float64(max(quantities, 2)))-1)
 }
 
 // splitCritical is the score that the parting of a lot of n must exceed.
 func splitCritical(n, quantities int) float64 {
-	return lookup(splitTable, n, quantities)
+	return lookup(splitTable, n, float64(quantities-1))
 }
 
-// sizeRow is one row of a table: a value for 1 to 6 quantities.
+// sizeRow is one row of a table: values for 1 to 6 quantities, or for 2 to 64.
 type sizeRow struct {
 	n      int
 	values [mostQuantities]float64
+}
+
+// at gives the value of a column, between two columns on the straight line.
+func (r *sizeRow) at(column float64) float64 {
+	column = min(max(column, 0), mostQuantities-1)
+	i := min(int(column), mostQuantities-2)
+	return r.values[i] + (column-float64(i))*(r.values[i+1]-r.values[i])
 }
 
 // lookup interpolates over ln n, between rows that are both even or both odd
 // while the sizes are small: a median of an odd number is another thing than one
 // of an even number. Beyond the last row it goes on in the direction of the last
 // two rows.
-func lookup(table []sizeRow, n, quantities int) float64 {
-	q := min(max(quantities, 1), mostQuantities) - 1
+func lookup(table []sizeRow, n int, column float64) float64 {
 	var a, b *sizeRow
 	for i := range table {
 		r := &table[i]
 		if r.n == n {
-			return r.values[q]
+			return r.at(column)
 		}
 		if n < sameParityBelow && r.n < sameParityBelow && (r.n-n)%2 != 0 {
 			continue
@@ -77,7 +96,8 @@ func lookup(table []sizeRow, n, quantities int) float64 {
 		a, b = b, r
 	}
 	at := (math.Log(float64(n)) - math.Log(float64(a.n))) / (math.Log(float64(b.n)) - math.Log(float64(a.n)))
-	return a.values[q] + at*(b.values[q]-a.values[q])
+	x, y := a.at(column), b.at(column)
+	return x + at*(y-x)
 }
 
 // sameParityBelow is the size from which odd and even lots are alike.
@@ -103,7 +123,9 @@ func bandOf(c *column, k float64, quantities int) band {
 		b.widen(c, b.sd)
 		return b
 	}
-	b.k = DefaultLimit(b.n, quantities)
+	if b.k = DefaultLimit(b.n, quantities); isCurve(c.key) {
+		b.k = curveLimit(b.n, quantities)
+	}
 	// A median distance of readings in steps is itself a whole number of steps,
 	// up to half a step less than it should be: in a large lot that alone would
 	// make false alarms.
@@ -200,11 +222,16 @@ func bandKnown(c *column, sd float64, devices int, k float64, quantities int) ba
 }
 
 // outside reports whether device i lies beyond the limits. Where its own reading
-// is worse than the spread of the lot, the limits are as many times as far.
+// is worse than the spread of the lot, the limits are as many times as far; where
+// part of its distance is another quantity's, the limits are farther by that.
 func (b *band) outside(c *column, i int) bool {
 	x := c.x[i]
 	if math.IsNaN(x) {
 		return false
+	}
+	if c.slack != nil {
+		off := x - b.mid
+		x = b.mid + math.Copysign(math.Max(0, math.Abs(off)-c.slack[i]), off)
 	}
 	if worse := c.u[i] / b.sd; worse > 1 {
 		x = b.mid + (x-b.mid)/worse

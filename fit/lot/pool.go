@@ -17,20 +17,23 @@ func TooFew(n int) bool { return n < fewest }
 // Source: pooled standard deviation, common practice, no source; that robust
 // deviations are pooled in the same way is our choice.
 func Pool(lots []Spread) *Known {
-	k := Known{RobustSD: map[fit.Key]float64{}}
+	k := Known{RobustSD: map[fit.Key]float64{}, Of: map[fit.Key]int{}}
 	squares, weights := map[fit.Key]float64{}, map[fit.Key]float64{}
 	for i := range lots {
 		if lots[i].Populations > 1 {
 			continue
 		}
 		devices := 0
-		for key, s := range lots[i].Summary {
-			if TooFew(s.N) || !(s.RobustSD > 0) {
-				continue
+		for _, of := range []map[fit.Key]Summary{lots[i].Summary, lots[i].Further} {
+			for key, s := range of {
+				if TooFew(s.N) || !(s.RobustSD > 0) {
+					continue
+				}
+				devices = max(devices, s.N)
+				k.Of[key] += s.N
+				squares[key] += float64(s.N-1) * s.RobustSD * s.RobustSD
+				weights[key] += float64(s.N - 1)
 			}
-			devices = max(devices, s.N)
-			squares[key] += float64(s.N-1) * s.RobustSD * s.RobustSD
-			weights[key] += float64(s.N - 1)
 		}
 		if devices > 0 {
 			k.Lots++

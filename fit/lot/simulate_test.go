@@ -42,12 +42,21 @@ func runsFor(n int) int {
 type cleanLots struct {
 	score    []float64 // of the parting, by lot
 	farthest []float64 // robust spreads from the median to the farthest device
-	esd      [mostQuantities][]bool
+	esd      map[int][]bool
 }
 
+// numbers of quantities of the columns of the tables.
+var (
+	fewQuantities   = []int{1, 2, 3, 4, 5, 6}
+	curveQuantities = []int{2, 4, 8, 16, 32, 64}
+)
+
 func simulateClean(n, runs int, draw func(*rand.Rand) float64) cleanLots {
-	c := cleanLots{score: make([]float64, runs), farthest: make([]float64, runs)}
-	for q := range c.esd {
+	c := cleanLots{score: make([]float64, runs), farthest: make([]float64, runs), esd: map[int][]bool{}}
+	columns := slices.Concat(fewQuantities, curveQuantities)
+	slices.Sort(columns)
+	columns = slices.Compact(columns)
+	for _, q := range columns {
 		c.esd[q] = make([]bool, runs)
 	}
 	rng := rand.New(rand.NewPCG(uint64(n), 20240229))
@@ -60,9 +69,12 @@ func simulateClean(n, runs int, draw func(*rand.Rand) float64) cleanLots {
 		c.score[r] = partingOf(x, 0, 0).score
 		b := center(&column{sorted: x, least: 1e-12})
 		c.farthest[r] = math.Max(b.mid-x[0], x[n-1]-b.mid) / b.sd
-		for q := range c.esd {
-			lo, hi := stats.ESDInner(x, esdLevel/float64(q+1), n/4)
-			c.esd[q][r] = hi-lo < n
+		for _, q := range columns {
+			lo, hi := stats.ESDInner(x, esdLevel/float64(q), n/4)
+			if hi-lo == n {
+				break // nor at a stricter level
+			}
+			c.esd[q][r] = true
 		}
 	}
 	return c
@@ -85,45 +97,58 @@ func t5(rng *rand.Rand) float64 {
 const leastScore = 4
 
 // tableRows works out one row of each table.
-func tableRows(n, runs int) (split, limit sizeRow) {
+func tableRows(n, runs int) (split, limit, curve sizeRow) {
 	c := simulateClean(n, runs, normal)
-	split.n, limit.n = n, n
+	split.n, limit.n, curve.n = n, n, n
 	scores := slices.Clone(c.score)
 	slices.Sort(scores)
-	for q := range mostQuantities {
-		m := float64(q + 1)
-		critical := math.Max(leastScore, scores[int(float64(runs)*(1-splitLevel/m))])
-		split.values[q] = critical
-		if n < fewest {
-			continue
+	for i, q := range fewQuantities {
+		split.values[i] = math.Max(leastScore, scores[int(float64(runs)*(1-splitLevel/float64(q)))])
+		if n >= fewest {
+			limit.values[i] = c.limit(q, split.values[i])
 		}
-		// What parting and ESD test leave of the level of one of m quantities.
-		left := float64(runs) * (1 - math.Pow(1-totalLevel, 1/m))
-		var rest []float64
-		for r := range runs {
-			if c.score[r] > critical || c.esd[q][r] {
-				left--
-			} else {
-				rest = append(rest, c.farthest[r])
-			}
-		}
-		if left < 20 {
-			panic(fmt.Sprintf("n %d, %d quantities: %v lots left for the limit", n, q+1, left))
-		}
-		slices.Sort(rest)
-		limit.values[q] = rest[len(rest)-int(left)]
 	}
-	return split, limit
+	for i, q := range curveQuantities {
+		if n < fewest {
+			break
+		}
+		curve.values[i] = c.limit(q, math.Inf(1))
+		if math.IsNaN(curve.values[i]) {
+			// Too few lots to tell: on as the normal distribution goes.
+			reach := func(q int) float64 { return math.Erfinv(1 - totalLevel/float64(n*q)) }
+			curve.values[i] = curve.values[i-1] * reach(q) / reach(curveQuantities[i-1])
+		}
+	}
+	return split, limit, curve
 }
 
-func allTables() (split, limit []sizeRow) {
-	split, limit = make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes))
+// limit is the limit that uses up what parting and ESD test leave of the level of
+// one of q quantities, NaN where fewer than 20 lots decide it.
+func (c *cleanLots) limit(q int, critical float64) float64 {
+	left := float64(len(c.score)) * (1 - math.Pow(1-totalLevel, 1/float64(q)))
+	var rest []float64
+	for r := range c.score {
+		if c.score[r] > critical || c.esd[q][r] {
+			left--
+		} else {
+			rest = append(rest, c.farthest[r])
+		}
+	}
+	if left < 20 {
+		return math.NaN()
+	}
+	slices.Sort(rest)
+	return rest[len(rest)-int(left)]
+}
+
+func allTables() (split, limit, curve []sizeRow) {
+	split, limit, curve = make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes))
 	var wg sync.WaitGroup
 	next := make(chan int)
 	for range 2 {
 		wg.Go(func() {
 			for i := range next {
-				split[i], limit[i] = tableRows(sizes[i], runsFor(sizes[i]))
+				split[i], limit[i], curve[i] = tableRows(sizes[i], runsFor(sizes[i]))
 			}
 		})
 	}
@@ -133,7 +158,7 @@ func allTables() (split, limit []sizeRow) {
 	close(next)
 	wg.Wait()
 	first := slices.Index(sizes, fewest)
-	return split, limit[first:]
+	return split, limit[first:], curve[first:]
 }
 
 func goRows(name, doc string, rows []sizeRow) string {
@@ -153,12 +178,17 @@ func goRows(name, doc string, rows []sizeRow) string {
 	return b.String()
 }
 
+// tablesFile is tables.go with these rows.
+func tablesFile(split, limit, curve []sizeRow) string {
+	return "// Made by TestLongTables with GATESILL_LONG=write; do not edit.\n\npackage lot\n" +
+		goRows("splitTable", "// splitTable holds critical scores of the parting: number of devices, and for 1 to 6\n// quantities the score that normal lots exceed in 0.4 % of lots.", split) +
+		goRows("limitTable", "// limitTable holds default limits in robust spreads: number of devices, and for 1 to\n// 6 quantities the limit with which 1.9 % of normal lots get any false alarm.", limit) +
+		goRows("curveTable", "// curveTable holds the same for 2, 4, 8, 16, 32 and 64 quantities by which lots are\n// not parted.", curve)
+}
+
 func TestLongTables(t *testing.T) {
 	mode := long(t)
-	split, limit := allTables()
-	text := "// Made by TestLongTables with GATESILL_LONG=write; do not edit.\n\npackage lot\n" +
-		goRows("splitTable", "// splitTable holds critical scores of the parting: number of devices, and for 1 to 6\n// quantities the score that normal lots exceed in 0.4 % of lots.", split) +
-		goRows("limitTable", "// limitTable holds default limits in robust spreads: number of devices, and for 1 to\n// 6 quantities the limit with which 1.9 % of normal lots get any false alarm.", limit)
+	text := tablesFile(allTables())
 	if mode == "write" {
 		if err := os.WriteFile("tables.go", []byte(text), 0o644); err != nil {
 			t.Fatal(err)
@@ -171,5 +201,31 @@ func TestLongTables(t *testing.T) {
 	}
 	if string(have) != text {
 		t.Errorf("tables.go differs from a fresh simulation:\n%s", text)
+	}
+}
+
+// The file of tables is laid out as it is made, and one size of it is found again
+// from a few lots.
+func TestTablesAreMade(t *testing.T) {
+	have, err := os.ReadFile("tables.go")
+	if err != nil {
+		t.Fatal(err)
+	}
+	if string(have) != tablesFile(splitTable, limitTable, curveTable) {
+		t.Error("tables.go is not laid out as TestLongTables does")
+	}
+	split, limit, curve := tableRows(10, 40_000) // 1,000,000 lots in the file
+	for _, c := range []struct {
+		name  string
+		row   sizeRow
+		table []sizeRow
+		tol   float64
+	}{{"score", split, splitTable, 0.05}, {"limit", limit, limitTable, 0.05}, {"limit of curves", curve, curveTable, 0.10}} {
+		for column := range 4 { // beyond, a handful of lots decide
+			got, want := c.row.values[column], lookup(c.table, 10, float64(column))
+			if math.Abs(got/want-1) > c.tol {
+				t.Errorf("%s of ten devices, column %d: %.2f, file %.2f", c.name, column, got, want)
+			}
+		}
 	}
 }

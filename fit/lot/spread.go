@@ -13,20 +13,23 @@ import (
 // Inputs: the devices in the order in which they are to be shown, not modified;
 // control parts and excluded devices are listed but in no statistic, dead and
 // declined ones are listed and not counted. Result: a summary of every quantity
-// of [fit.Keys]; limits of those by which devices were judged (V_GS(th), gate
-// bias at the idle current, gains); a verdict for every device. Physical flags
+// of [fit.Keys]; limits of those by which devices were judged (V_GS(th) or gate
+// bias at the idle current, gains, the whole curve); a verdict for every device.
+// Physical flags
 // are given whatever the size of the lot; flags for standing apart only from 8
 // devices up, or with the spread of earlier lots in opt.Known.
 //
 // Source: limits and the test for two populations, see [DefaultLimit] and
 // partingOf. Checked: TestTenFromABag and the other scenarios, TestFalseAlarms,
-// TestOtherDie.
+// TestOtherDie,
+// TestDamagedDevices.
 func SpreadOf(devs []Device, opt SpreadOptions) Spread {
 	l := newJudge(devs, opt)
 	s := Spread{
 		SortedBy:    l.sortedBy,
 		Populations: 1,
 		Summary:     l.summaries(),
+		Further:     l.further(),
 		Limits:      map[fit.Key]Limit{},
 	}
 	s.Estimator = estimatorWords(s.Summary[l.sortedBy].N)
@@ -37,12 +40,16 @@ func SpreadOf(devs []Device, opt SpreadOptions) Spread {
 		s.Warnings = append(s.Warnings, l.evenWarning()...)
 	}
 	for _, j := range l.judged {
-		s.Limits[j.col.key] = j.band.limit(j.col)
+		l.showLimit(s.Limits, j)
 	}
 	for i := range devs {
 		s.Devices = append(s.Devices, l.verdict(i))
 	}
+	if l.curves != nil {
+		s.Currents = l.curves.at
+	}
 	s.Warnings = append(s.Warnings, l.sizeWarnings()...)
+	s.Warnings = append(s.Warnings, l.curveWarnings()...)
 	s.Warnings = append(s.Warnings, l.readingWarnings(s.Summary)...)
 	return s
 }
@@ -55,9 +62,12 @@ type judge struct {
 	columns  map[fit.Key]*column
 	keys     []fit.Key // of columns, in order
 	family   []*column // quantities by which devices of one family are alike
+	curves   *curves   // nil: the lot has none to compare
+	curve    []*column // departures of the curves, by current
 	groups   *twoGroups
-	odd      []bool // by device: in the small one of two populations; nil: none
-	oddWords string // what the two groups are, where one is odd
+	odd      []bool              // by device: in the small one of two populations; nil: none
+	oddWords string              // what the two groups are, where one is odd
+	mains    map[*column]*column // without the odd ones, as far as asked for
 	judged   []judged
 	centers  map[fit.Key]*judged // for distances
 	leak     leakRule
@@ -73,7 +83,7 @@ func newJudge(devs []Device, opt SpreadOptions) *judge {
 	if !(opt.K > 0) || math.IsInf(opt.K, 0) {
 		opt.K = 0
 	}
-	l := &judge{devs: devs, opt: opt, columns: map[fit.Key]*column{}, centers: map[fit.Key]*judged{}}
+	l := &judge{devs: devs, opt: opt, columns: map[fit.Key]*column{}, centers: map[fit.Key]*judged{}, mains: map[*column]*column{}}
 	for _, k := range fit.Keys {
 		l.columns[k] = columnOf(devs, k, opt.PChannel, opt.Resolution[k])
 	}
@@ -88,18 +98,32 @@ func newJudge(devs []Device, opt SpreadOptions) *judge {
 	l.dropUnasked()
 	l.leak = leakRuleOf(l.columns[fit.KeyIdss], &l.opt)
 	l.family = l.familyColumns()
+	at := opt.Currents
+	if at == nil {
+		at = Currents(devs)
+	}
+	if l.curves = curvesOf(devs, at, opt.PChannel); l.curves != nil {
+		l.curve = l.curves.columns()
+	}
 	l.groups = findGroups(l.family)
 	if l.groups != nil {
 		l.findOdd()
 	}
 	l.setLimits()
 	for _, k := range l.keys {
-		c := l.columns[k]
-		if _, ok := l.centers[k]; !ok && len(c.sorted) > 0 {
-			l.centers[k] = &judged{c, center(l.main(c))}
-		}
+		l.setCenter(l.columns[k])
+	}
+	for _, c := range l.curve {
+		l.setCenter(c)
 	}
 	return l
+}
+
+// setCenter gives a column without limits something to measure distances from.
+func (l *judge) setCenter(c *column) {
+	if _, ok := l.centers[c.key]; !ok && len(c.sorted) > 0 {
+		l.centers[c.key] = &judged{c, center(l.main(c))}
+	}
 }
 
 // dropUnasked forgets 'above' for a quantity that no device has, unless the lot
@@ -112,64 +136,17 @@ func (l *judge) dropUnasked() {
 	}
 }
 
-// familyColumns are the quantities in which devices of one family are alike: one
-// gate voltage (that which the lot is sorted by) and one measure of drive
-// strength, the one that most devices have. More of each say the same again, and
-// every quantity looked at costs power in all, for the false alarms of a lot are
-// limited together. A gate span stands in where no gain is known.
-func (l *judge) familyColumns() []*column {
-	var out []*column
-	add := func(c *column) {
-		if c != nil && len(c.sorted) > 0 {
-			out = append(out, c)
-		}
-	}
-	add(l.most(l.sortedBy, isThreshold, fit.KeyVgsIdle, fit.KeyVgsth))
-	gain := l.most(l.sortedBy, isGain, fit.KeyGmIdle, fit.KeyBeta, fit.KeyGmMax)
-	add(gain)
-	if isGain(l.sortedBy) && len(out) == 2 {
-		out[0], out[1] = out[1], out[0] // the one that the lot is sorted by first
-	}
-	gains := 0
-	if gain != nil {
-		gains = len(gain.sorted)
-	}
-	if gains == 0 {
-		step := math.Max(l.opt.Resolution[fit.KeyVgsth], l.opt.Resolution[fit.KeyVgsIdle])
-		if !(step > 0) {
-			step = math.Max(l.columns[fit.KeyVgsth].step, l.columns[fit.KeyVgsIdle].step)
-		}
-		span := columnOf(l.devs, KeySpan, l.opt.PChannel, step)
-		if len(span.sorted) > 0 {
-			l.columns[KeySpan] = span
-			l.keys = append(l.keys, KeySpan)
-			add(span)
-		}
-	}
-	return out
-}
-
-// most is the column that the lot is sorted by if it is of that kind, else of the
-// keys the one that most devices have, the first of equals.
-func (l *judge) most(sortedBy fit.Key, kind func(fit.Key) bool, keys ...fit.Key) *column {
-	if kind(sortedBy) && len(l.columns[sortedBy].sorted) > 0 {
-		return l.columns[sortedBy]
-	}
-	var best *column
-	for _, k := range keys {
-		if c := l.columns[k]; c != nil && (best == nil || len(c.sorted) > len(best.sorted)) {
-			best = c
-		}
-	}
-	return best
-}
-
 // main is a column without the devices of a small second population.
 func (l *judge) main(c *column) *column {
 	if l.odd == nil {
 		return c
 	}
-	return c.without(l.odd)
+	m := l.mains[c]
+	if m == nil {
+		m = c.without(l.odd)
+		l.mains[c] = m
+	}
+	return m
 }
 
 func (l *judge) findOdd() {
@@ -181,57 +158,6 @@ func (l *judge) findOdd() {
 	}
 }
 
-// setLimits works out the limits of every quantity that can have some. In a lot
-// of two populations of like size there are none: neither is the odd one.
-func (l *judge) setLimits() {
-	if l.groups != nil && l.odd == nil {
-		return
-	}
-	var own, known []*column
-	for _, c := range l.family {
-		switch {
-		case len(l.main(c).sorted) >= fewest:
-			own = append(own, c)
-		case l.knownSD(c) > 0:
-			known = append(known, c)
-		}
-	}
-	quantities := len(own) + len(known)
-	for _, c := range own {
-		l.limitBy(c, bandOf(l.main(c), l.opt.K, quantities))
-	}
-	for _, c := range known {
-		l.limitBy(c, bandKnown(l.main(c), l.knownSD(c), l.opt.Known.Devices, l.opt.K, quantities))
-	}
-}
-
-// limitBy judges by a column, unless too many of its devices are above the
-// current to say where its middle lies.
-func (l *judge) limitBy(c *column, b band) {
-	if math.IsNaN(b.mid) || math.IsNaN(b.sd) {
-		return
-	}
-	l.judged = append(l.judged, judged{c, b})
-	l.centers[c.key] = &judged{c, b}
-}
-
-// knownSD is the spread of a quantity from earlier lots on the judged scale, 0
-// where there is none.
-func (l *judge) knownSD(c *column) float64 {
-	k := l.opt.Known
-	if k == nil || k.Devices < fewest {
-		return 0
-	}
-	sd := k.RobustSD[c.key]
-	if c.log {
-		sd /= c.raw(center(c).mid)
-	}
-	if !(sd > 0) || math.IsInf(sd, 0) {
-		return 0
-	}
-	return sd
-}
-
 func (l *judge) summaries() map[fit.Key]Summary {
 	out := map[fit.Key]Summary{}
 	for _, k := range fit.Keys {
@@ -240,16 +166,31 @@ func (l *judge) summaries() map[fit.Key]Summary {
 	return out
 }
 
+// further sums up the quantities that only a lot has.
+func (l *judge) further() map[fit.Key]Summary {
+	out := map[fit.Key]Summary{}
+	if c := l.columns[KeySpan]; c != nil {
+		out[KeySpan] = c.summary()
+	}
+	for _, c := range l.curve {
+		out[c.key] = c.summary()
+	}
+	return out
+}
+
 // verdict of device i.
 func (l *judge) verdict(i int) Verdict {
 	d := &l.devs[i]
-	v := Verdict{Name: d.Name, Distance: make(map[fit.Key]float64, len(l.keys))}
+	v := Verdict{Name: d.Name, Distance: make(map[fit.Key]float64, len(l.keys)+1)}
 	for _, k := range l.keys {
 		far := math.NaN()
 		if j, ok := l.centers[k]; ok {
 			far = j.band.distance(l.columns[k], i)
 		}
 		v.Distance[k] = far
+	}
+	if l.curve != nil {
+		v.Distance[KeyCurve] = l.curveDistance(i)
 	}
 	if d.Control || d.Result.State == fit.Excluded {
 		return v
@@ -260,54 +201,6 @@ func (l *judge) verdict(i int) Verdict {
 	}
 	v.Flagged = len(v.Reasons) > 0
 	return v
-}
-
-// familyReasons says in which respects device i stands apart from its lot: one
-// sentence for the gate voltage and one for the gain, each by the quantity that
-// is farthest off.
-func (l *judge) familyReasons(i int) []Reason {
-	var out []Reason
-	whose := "the lot's"
-	if l.odd != nil {
-		whose = "the greater group's"
-		if l.odd[i] {
-			c := l.groups.col
-			out = append(out, Reason{fit.CodeTwoPopulations, fmt.Sprintf("%s of %s puts it with the smaller of two groups: %s",
-				nameOf(c.key), show(c.key, c.v[i]), l.oddWords)})
-		}
-	}
-	threshold, gain := l.farthest(i, isThreshold), l.farthest(i, isGain)
-	if threshold != nil {
-		out = append(out, Reason{fit.CodeOffFamilyThreshold, offSentence(threshold.col, &threshold.band, i, whose, l.spreads(threshold))})
-	}
-	if gain != nil {
-		text := offSentence(gain.col, &gain.band, i, whose, l.spreads(gain))
-		if threshold == nil && !math.IsNaN(l.columns[fit.KeyVgsth].x[i]) {
-			text += ", while its V_GS(th) is like the others'"
-		}
-		out = append(out, Reason{fit.CodeOffFamilyGain, text})
-	}
-	return out
-}
-
-func (l *judge) farthest(i int, kind func(fit.Key) bool) *judged {
-	var best *judged
-	for n := range l.judged {
-		j := &l.judged[n]
-		if kind(j.col.key) && j.band.outside(j.col, i) &&
-			(best == nil || math.Abs(j.band.distance(j.col, i)) > math.Abs(best.band.distance(best.col, i))) {
-			best = j
-		}
-	}
-	return best
-}
-
-// spreads names the unit of a distance.
-func (l *judge) spreads(j *judged) string {
-	if j.band.basis == BasisHistory {
-		return fmt.Sprintf("robust spreads, known from %d earlier devices,", l.opt.Known.Devices)
-	}
-	return "robust spreads"
 }
 
 // evenWarning says why two populations of like size leave nothing flagged, and
@@ -337,37 +230,6 @@ func (l *judge) evenWarning() []fit.Warning {
 		}
 	}
 	return []fit.Warning{{Code: fit.CodeTwoPopulations, Text: text}}
-}
-
-// sizeWarnings says for which quantities the devices are too few.
-func (l *judge) sizeWarnings() []fit.Warning {
-	if l.groups != nil && l.odd == nil {
-		return nil
-	}
-	limited := map[fit.Key]band{}
-	for _, j := range l.judged {
-		limited[j.col.key] = j.band
-	}
-	first := l.columns[l.sortedBy]
-	cols := l.family
-	if len(cols) == 0 {
-		cols = []*column{first}
-	}
-	var out []fit.Warning
-	for _, c := range cols {
-		n := len(l.main(c).sorted)
-		if n >= fewest {
-			continue
-		}
-		text := fmt.Sprintf("too few to judge one another by %s: %d devices have a value, %d are needed", nameOf(c.key), n, fewest)
-		if b, ok := limited[c.key]; ok && b.basis == BasisHistory {
-			text += fmt.Sprintf("; the spread of %d earlier devices of this part is used", l.opt.Known.Devices)
-		} else {
-			text += "; no device is flagged for standing apart in it"
-		}
-		out = append(out, fit.Warning{Code: fit.CodeNTooSmall, Text: text})
-	}
-	return out
 }
 
 // readingWarnings says where the readings limit what can be said of the spread,

@@ -8,23 +8,43 @@
 //
 // [SpreadOf] looks in this order: devices with a fault of their own (open,
 // shorted, leaking, ...), whether the lot is two populations, and only then
-// single devices outside the limits of their lot. The limits are set so that at
+// single devices outside the limits of their lot: by gate voltage, by gain factor
+// and transconductance at the idle current, and by the whole curve, where it is
+// not what threshold and gain let expect (curve.go). Two populations are looked
+// for by gate voltage and gains, not by the curve. The limits are set so that at
 // most 2 % of lots without anything odd, of any size, get any flag for standing
-// apart or are called two populations; that holds for values spread like a
-// normal distribution (gains: they or their logarithms) and was found by
-// simulation, see limits.go. Lots with heavier tails get more: with those of
-// Student's t with 5 degrees of freedom, 6 % of lots of 10, 14 % of lots of 20,
-// 25 % of lots of 40 and 58 % of lots of 120 have a flagged device. Of lots spread
-// evenly over a range (sorted by their seller) up to 7 % are called two
-// populations.
+// apart or are called two populations, all quantities together; that holds for
+// values spread like a normal distribution (gains: they or their logarithms) and
+// was found by simulation, see limits.go. Lots with heavier tails get more: with
+// those of Student's t with 5 degrees of freedom in all that differs, 5 % of lots
+// of 10, 15 % of lots of 20, 32 % of lots of 40 and 71 % of lots of 120 have a
+// flagged device (by one quantity alone 6, 14, 25 and 58 %). Of lots spread evenly
+// over a range (sorted by their seller) up to 7 % are called two populations.
 package lot
 
-import "gatesill/fit"
+import (
+	"fmt"
+
+	"gatesill/fit"
+)
 
 // KeySpan is the gate span from the test current to the idle current, V: the
 // drive strength of a device of which nothing else tells it (two spots). It is
 // in Limits and Distance only, and only where no gain is known.
 const KeySpan fit.Key = "gate_span_V"
+
+// KeyCurve is the departure of the whole curve from what threshold and gain let
+// expect, V of gate voltage at some current. It is in Limits and Distance only:
+// the distance is that at the current where it is greatest, with its sign (more
+// gate voltage than expected is positive); the limits are the widest at any of
+// the currents.
+const KeyCurve fit.Key = "curve_V"
+
+// CurveKey names the departure at one current, A, for [Spread.Further] and
+// [Known].
+func CurveKey(current float64) fit.Key {
+	return fit.Key(fmt.Sprintf("curve_at_%gA_V", current))
+}
 
 // Device is one device of the lot with the result of its fit.
 type Device struct {
@@ -100,6 +120,8 @@ type Spread struct {
 	Populations int // 1 or 2
 	Split       *Split
 	Summary     map[fit.Key]Summary
+	Further     map[fit.Key]Summary // of quantities that only a lot has: [KeySpan], and what [CurveKey] names, at each of Currents
+	Currents    []float64           // A, at which the curves were compared; nil: they were not
 	Limits      map[fit.Key]Limit
 	Devices     []Verdict // in the order given
 	Estimator   string    // names the robust estimator, for the reader
@@ -111,6 +133,7 @@ type Spread struct {
 type Known struct {
 	RobustSD map[fit.Key]float64 // unit of the quantity
 	Devices  int                 // fewer than 8: not used
+	Of       map[fit.Key]int     // devices with a value, where not all have the quantity; absent: Devices
 	Lots     int
 }
 
@@ -119,6 +142,7 @@ type SpreadOptions struct {
 	SortedBy     fit.Key             // primary quantity; "": gate bias at the idle current where there is one, else V_GS(th)
 	K            float64             // limit in robust spreads; 0 or NaN: the default of the lot's size
 	Known        *Known              // nil: none
+	Currents     []float64           // A, at which the curves are compared, of [fit.LevelCurrents] and ascending; nil: those of [Currents]
 	Resolution   map[fit.Key]float64 // step of the readings; 0 or absent: found from the data
 	LeakageLimit float64             // A, drain leakage that is too much; 0 or NaN: default rule, see physical.go
 	TestCurrent  float64             // A, for the default rule of leakage; 0 or NaN: not known

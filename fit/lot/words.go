@@ -25,6 +25,9 @@ func nameOf(k fit.Key) string {
 	if n, ok := names[k]; ok {
 		return n
 	}
+	if isCurve(k) {
+		return "the whole curve"
+	}
 	return string(k)
 }
 

@@ -16,12 +16,14 @@ import (
 
 // history gives the spread of the same part in earlier lots that were measured
 // under like conditions, for a lot too small to judge itself; nil when the lot
-// is large enough or there is none.
+// is large enough or there is none. The other lots are fitted again from their
+// sweeps, at this lot's currents: how much a curve departs at a current depends on
+// the currents it is fitted over, so that no kept number would do.
 func history(ctx context.Context, db *store.DB, s *report.Sheet, method string) (*lot.Known, error) {
 	if measured := s.Counts().Measured; measured == 0 || !lot.TooFew(measured) {
 		return nil, nil
 	}
-	like := conditions(s)
+	like, currents := conditions(s), lot.Currents(lotDevices(s))
 	var past []lot.Spread
 	err := db.View(ctx, func(tx *store.Tx) error {
 		names, err := tx.LotsOfPart(s.Part.ID)
@@ -45,7 +47,7 @@ func history(ctx context.Context, db *store.DB, s *report.Sheet, method string) 
 				return err
 			}
 			other.SortedBy = s.SortedBy
-			judge(&other, 0, nil)
+			judge(&other, lot.SpreadOptions{Currents: currents})
 			past = append(past, other.Spread)
 		}
 		return nil

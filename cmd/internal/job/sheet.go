@@ -72,7 +72,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	if err != nil {
 		return s, storeFailure(err)
 	}
-	judge(&s, o.Limit, known)
+	judge(&s, lot.SpreadOptions{K: o.Limit, Known: known})
 	s.Hash = dataHash(&s)
 	if !o.ReadOnly {
 		err := db.Update(ctx, func(tx *store.Tx) error { return tx.PutEstimates(estimates(&s, o.Method, digits)) })
@@ -217,12 +217,13 @@ func sortedBy(s *report.Sheet) fit.Key {
 	return fit.KeyVgsth
 }
 
-// judge fills spread and flags of the sheet.
-func judge(s *report.Sheet, limit float64, known *lot.Known) {
-	s.Spread = lot.SpreadOf(lotDevices(s), lot.SpreadOptions{
-		SortedBy: s.SortedBy, K: limit, Known: known, TestCurrent: s.TestCurrent, PChannel: s.Part.Channel == record.PChannel,
-		VgsthMin: s.Part.VgsthMin.Float(), VgsthMax: s.Part.VgsthMax.Float(),
-	})
+// judge fills spread and flags of the sheet; opt is completed by what the sheet
+// says.
+func judge(s *report.Sheet, opt lot.SpreadOptions) {
+	opt.SortedBy, opt.TestCurrent = s.SortedBy, s.TestCurrent
+	opt.PChannel = s.Part.Channel == record.PChannel
+	opt.VgsthMin, opt.VgsthMax = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	s.Spread = lot.SpreadOf(lotDevices(s), opt)
 	if w, ok := unlike(s); ok {
 		s.Spread.Warnings = append([]fit.Warning{w}, s.Spread.Warnings...)
 	}

@@ -1,0 +1,353 @@
+package fit
+
+import (
+	"math"
+	"slices"
+
+	"gatesill/fit/lsq"
+)
+
+// whole is the transfer model laid through a whole curve.
+type whole struct {
+	transfer
+	from   []int   // index of each point in work.pts
+	noise  float64 // V, scatter of points about the curve, beyond what is stated of them
+	apart  []bool  // points so far off the curve that they do not count
+	scale  []float64
+	misfit float64 // reduced χ², floors included, of the points that count
+	got    lsq.Fit
+}
+
+// The floors of the weights: what the model itself is wrong by. Without them the few
+// points below the threshold, whose noise is least, would decide.
+const (
+	modelShare = 0.005 // of the current
+	modelOfTop = 0.001 // of the greatest current
+)
+
+const (
+	// usualNoise is the scatter of a handheld's gate reading, V (common practice, no
+	// source).
+	usualNoise = 0.4e-3
+	// leastStrong is the fewest points that carry strongShare of the greatest current
+	// or more.
+	leastStrong = 4
+	strongShare = 0.01
+	// weakTheta holds θ only where the points say nothing of it, 1/V; weakLambda
+	// likewise.
+	weakTheta  = 1.0
+	weakLambda = 0.015
+	// wellSaturated is how many times the overdrive the drain voltage must be for a
+	// point behind a load resistor that takes most of the supply to count (judgement).
+	wellSaturated = 2
+	// farOff is how many times the median residual a point may lie off the curve, and
+	// leastOff the least residual, in floors, that is called off (judgement).
+	farOff   = 7
+	leastOff = 4
+	// mostOff is the share of the points that may be so.
+	mostOff = 0.2
+	// plainMisfit is the reduced χ² above which the model does not describe a curve
+	// (judgement: with the floors 0.03 to 0.1 is normal).
+	plainMisfit = 4
+)
+
+// wholeOptions stop a fit when a further step would not matter (parSteps).
+var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
+
+// whole is the model laid through the curve, nil where there is none to be had.
+func (w *work) whole() *whole {
+	if !w.laid {
+		w.laid = true
+		if t, ok := w.layWhole(); ok {
+			w.model = t
+		}
+	}
+	return w.model
+}
+
+// layWhole lays the model through the curve; false where the points do not
+// allow it.
+//
+// Uses the points that the model is meant for (see top). Weights: 1/σ² of the
+// points' scatter, taken to volts at the gate and by the slope to a current, and of
+// the floors; set from the readings first and then from the curve fitted. Points
+// that stand far off the curve are given no weight, so that no single bad one moves
+// the threshold.
+//
+// Parameters: V_T, β, n, θ, and λ in the load circuit. n is the width of the knee
+// here, no slope factor. Resistance in the source lead goes into θ.
+//
+// Source: equation, see [Model]; V_T by whole-curve fits in all regions, A.
+// Ortiz-Conde et al., Microelectronics Reliability 42 (2002) 583–596 (section from
+// memory); leaving out by multiples of the median absolute residual, common
+// practice. Checked: TestWholeCurve, TestOutsideThresholds, TestOneBadPoint.
+func (w *work) layWhole() (*whole, bool) {
+	t := &whole{}
+	if w.s.Circuit == NoCircuit || !t.choose(w, math.NaN()) || !t.start(w.resistive()) {
+		return nil, false
+	}
+	if t.f.drain > 0 && w.s.Circuit == Load {
+		t.choose(w, t.p[parVt])
+	}
+	strong := 0
+	top := slices.Max(t.i)
+	for _, i := range t.i {
+		if i > strongShare*top {
+			strong++
+		}
+	}
+	if strong < leastStrong {
+		return nil, false
+	}
+	t.free = []int{parVt, parBeta, parN, parTheta}
+	t.mean[parTheta], t.sd[parTheta] = usualTheta, weakTheta
+	if w.s.Circuit == Load && t.f.drain > 0 && strong >= 2*leastStrong {
+		t.free = append(t.free, parLambda)
+		t.mean[parLambda], t.sd[parLambda] = 0.01, weakLambda
+	}
+	for j := range t.slope {
+		t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
+	}
+	t.noise = usualNoise
+	t.apart = make([]bool, len(t.vg))
+	for range 3 {
+		t.weigh(w)
+		t.got = t.fit(wholeOptions)
+		if !t.got.Reason.Converged() && t.got.Reason != lsq.TooManyEvaluations {
+			return nil, false
+		}
+		t.noise = t.scatter(w)
+		if !t.setApart() {
+			break
+		}
+	}
+	t.misfit = t.got.Scale()
+	return t, true
+}
+
+// setApart finds the points that stand far off the curve, by the median of all
+// residuals; it reports whether they are others than before.
+func (t *whole) setApart() (changed bool) {
+	t.scale = t.scale[:0]
+	for j := range t.vg {
+		t.scale = append(t.scale, math.Abs(t.residual(j)))
+	}
+	limit := math.Max(farOff*median(t.scale), leastOff)
+	n := 0
+	for j := range t.vg {
+		off := math.Abs(t.residual(j)) > limit
+		if off {
+			n++
+		}
+		changed = changed || off != t.apart[j]
+	}
+	if float64(n) > mostOff*float64(len(t.vg)) {
+		return false
+	}
+	for j := range t.vg {
+		t.apart[j] = math.Abs(t.residual(j)) > limit
+	}
+	return changed
+}
+
+// residual of point j, in units of what it may be off.
+func (t *whole) residual(j int) float64 {
+	s := t.sigma[j]
+	if t.apart[j] {
+		s /= noWeight
+	}
+	return (t.solved[j] - t.i[j]) / s
+}
+
+// noWeight is the factor to sigma that takes a point out of a fit.
+const noWeight = 1e6
+
+// choose takes the points that the model can describe: see top; and once the
+// threshold is known about, all whose drain voltage is well above the overdrive.
+func (t *whole) choose(w *work, vt float64) bool {
+	t.size(len(w.pts))
+	t.from = t.from[:0]
+	n := 0
+	for j := range w.pts {
+		p := &w.pts[j]
+		top, ok := w.top(p)
+		if !ok && p.vds > wellSaturated*(p.vg-vt) {
+			top, ok = w.supplyOf(p)
+		}
+		if !ok {
+			continue
+		}
+		t.vg[n], t.vtop[n], t.i[n] = p.vg, top, p.i
+		t.from = append(t.from, j)
+		n++
+	}
+	t.size(n)
+	t.f = w.feed()
+	return n > 0
+}
+
+// feed is the circuit as far as it is known.
+func (w *work) feed() (f feed) {
+	burden := w.s.Burden
+	if !positive(burden) {
+		burden = 0
+	}
+	switch w.s.Circuit {
+	case Diode:
+		f.tied = true
+	case Fixed:
+		if len(w.c.Vd) == 0 {
+			f.drain = burden
+		}
+	case Load:
+		if positive(w.s.RL) && finiteNumber(w.vdd) {
+			f.drain = w.s.RL + burden
+		}
+	}
+	return f
+}
+
+// manyVolts stands for a drain voltage that is not known but well above the
+// overdrive.
+const manyVolts = 1000
+
+// top is the voltage above the circuit's drain resistance at point p; false for a
+// point that the model is not meant for: no drain voltage known, or more than half
+// of the supply across R_L, for the model's channel is no good resistor.
+func (w *work) top(p *point) (float64, bool) {
+	switch w.s.Circuit {
+	case Diode:
+		if v := w.drainAt(p.k); finiteNumber(v) {
+			return v, true
+		}
+		return p.vg, true
+	case Fixed:
+		if len(w.c.Vd) > 0 {
+			v := w.drainAt(p.k)
+			return v, finiteNumber(v)
+		}
+		return w.s.Vds, positive(w.s.Vds)
+	case Load:
+		v := w.supplyAt(p.k)
+		if !positive(w.s.RL) {
+			return manyVolts, true
+		}
+		if !finiteNumber(v) {
+			return manyVolts, p.i*w.s.RL < 0.5*w.least
+		}
+		return v, p.i*w.s.RL < 0.5*v
+	}
+	return manyVolts, true
+}
+
+// resistive reports whether the channel is a resistor at most points.
+func (w *work) resistive() bool { return w.s.Circuit == Fixed && w.fixedVds() < linearVds }
+
+// start finds the parameters to start from: a straight line through the root of
+// the current, or through the current itself where the channel is a resistor; the
+// steepest step where the load resistor leaves too few points for a line.
+func (t *transfer) start(resistive bool) bool {
+	top := 0.0
+	free := func(j int) bool { return t.f.drain == 0 || resistive || t.i[j]*t.f.drain < 0.5*t.vtop[j] }
+	for j := range t.i {
+		if free(j) {
+			top = math.Max(top, t.i[j])
+		}
+	}
+	lo := 0.02
+	if resistive {
+		lo = 0.2
+	}
+	root := func(i float64) float64 {
+		if resistive {
+			return i
+		}
+		return math.Sqrt(math.Max(0, i))
+	}
+	var n, sx, sy, sxx, sxy float64
+	for j, i := range t.i {
+		if i < lo*top || !free(j) {
+			continue
+		}
+		y := root(i)
+		n++
+		sx += t.vg[j]
+		sy += y
+		sxx += t.vg[j] * t.vg[j]
+		sxy += t.vg[j] * y
+	}
+	b := (n*sxy - sx*sy) / (n*sxx - sx*sx)
+	vt := (sx - sy/b) / n
+	if n < 3 || !(b > 0) {
+		b = 0
+		for j := 1; j < len(t.i); j++ {
+			if s := (root(t.i[j]) - root(t.i[j-1])) / (t.vg[j] - t.vg[j-1]); s > b {
+				b, vt = s, t.vg[j]-root(t.i[j])/s
+			}
+		}
+	}
+	if !(b > 0) || math.IsNaN(vt) {
+		return false
+	}
+	t.p = [parCount]float64{parVt: vt, parBeta: math.Log(2 * b * b), parN: math.Log(1.5)}
+	if resistive {
+		v := t.vtop[len(t.vtop)-1]
+		t.p[parVt] -= v / 2
+		t.p[parBeta] = math.Log(b / v)
+	}
+	return true
+}
+
+// weigh sets sigma from what is known of the points, the scatter seen, and the
+// floors.
+func (t *whole) weigh(w *work) {
+	top := slices.Max(t.i)
+	for j := range t.sigma {
+		p := &w.pts[t.from[j]]
+		random := rss(p.u, t.slope[j]*rss(t.noise, p.ux))
+		t.sigma[j] = rss(random, t.floor(j, top))
+		if t.apart[j] {
+			t.sigma[j] *= noWeight
+		}
+	}
+}
+
+// floor is what the model itself is wrong by at point j, A.
+func (t *whole) floor(j int, top float64) float64 {
+	return rss(modelShare*t.solved[j], modelOfTop*top)
+}
+
+// scatter is the standard deviation of the points about the curve, in volts at the
+// gate, beyond what is stated of them: of those that carry a hundredth of the
+// greatest current or more.
+func (t *whole) scatter(w *work) float64 {
+	top := slices.Max(t.i)
+	var sum, known float64
+	n := 0
+	for j, i := range t.i {
+		if i < strongShare*top || t.apart[j] {
+			continue
+		}
+		p := &w.pts[t.from[j]]
+		r := (t.solved[j] - i) / t.slope[j]
+		sum += r * r
+		k := rss(p.ux, p.u/t.slope[j])
+		known += k * k
+		n++
+	}
+	if n == 0 {
+		return t.noise
+	}
+	// Of few points the scatter says little: two more of a usual one are added.
+	free := float64(max(0, n-len(t.free)))
+	return math.Sqrt(math.Max(0, (sum+2*usualNoise*usualNoise)/(free+2)-known/float64(n)))
+}
+
+// secant is the slope of the curve at point j by its neighbours.
+func secant(x, y []float64, j int) float64 {
+	a, b := max(0, j-1), min(len(x)-1, j+1)
+	if !(x[b] > x[a]) {
+		return 0
+	}
+	return math.Max(0, (y[b]-y[a])/(x[b]-x[a]))
+}
