@@ -41,10 +41,10 @@ func BenchmarkFaults(b *testing.B) {
 		}
 	})
 	c, t := thirtyPoints(Diode)
-	sweeps := []Swept{{c, t, "up"}, {c, t, "down"}}
 	b.Run("drift", func(b *testing.B) {
 		b.ReportAllocs()
 		r := One(c, t)
+		sweeps := []Swept{{c, t, "up", r}, {c, t, "down", r}}
 		for b.Loop() {
 			Drift(sweeps, &r)
 		}

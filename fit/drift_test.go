@@ -78,7 +78,10 @@ func TestHeatingOrHistory(t *testing.T) {
 			sweeps[0].Curve = d.read(r, b, m, up, &rise, &charge)
 			charge += d.memory
 			sweeps[1].Curve = d.read(r, b, m, down, &rise, &charge)
-			res := Combine([]Result{One(sweeps[0].Curve, s), One(sweeps[1].Curve, s)}, []string{"up", "down"})
+			for j := range sweeps {
+				sweeps[j].Result = One(sweeps[j].Curve, s)
+			}
+			res := Combine([]Result{sweeps[0].Result, sweeps[1].Result}, []string{"up", "down"})
 			Drift(sweeps, &res)
 			o.n++
 			text := warningText(res, CodeHeating)

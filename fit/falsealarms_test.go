@@ -225,7 +225,7 @@ func (a *alarmRates) take(t *testing.T, p soundPair) {
 	}
 	a.pairs++
 	r := Combine(rs, []string{"up", "down"})
-	Drift([]Swept{{p.curve[0], p.setup, "up"}, {p.curve[1], p.setup, "down"}}, &r)
+	Drift([]Swept{{p.curve[0], p.setup, "up", rs[0]}, {p.curve[1], p.setup, "down", rs[1]}}, &r)
 	for _, code := range []string{CodeSweepsDisagree, CodeHeating, CodeGateHistory} {
 		if r.Has(code) && rs[0].State == rs[1].State {
 			a.count(t, code, p.name+": "+warningText(r, code))

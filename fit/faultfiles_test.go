@@ -297,9 +297,11 @@ func TestFaultFiles(t *testing.T) {
 		up, down := f.make(t, dense)
 		s := f.bench.setup()
 		s.TestCurrent, s.RLTol = 10e-3, nan()
-		rs, dirs, swept := []Result{One(up, s)}, []string{"up"}, []Swept{{up, s, "up"}}
+		rs, dirs := []Result{One(up, s)}, []string{"up"}
+		swept := []Swept{{up, s, "up", rs[0]}}
 		if down.Vg != nil {
-			rs, dirs, swept = append(rs, One(down, s)), append(dirs, "down"), append(swept, Swept{down, s, "down"})
+			rs, dirs = append(rs, One(down, s)), append(dirs, "down")
+			swept = append(swept, Swept{down, s, "down", rs[1]})
 		}
 		r := Combine(rs, dirs)
 		Drift(swept, &r)

@@ -225,7 +225,7 @@ func checkSane(t interface {
 		}
 	}
 	both := Combine([]Result{r, r}, []string{"up", "down"})
-	Drift([]Swept{{c, s, "up"}, {c, s, "down"}}, &both)
+	Drift([]Swept{{c, s, "up", r}, {c, s, "down", r}}, &both)
 	if both.Has(CodeHeating) || both.Has(CodeGateHistory) {
 		t.Fatalf("one curve differs from itself: %v", both.Warnings)
 	}

@@ -185,7 +185,7 @@ func fitDevice(s *report.Sheet, d *report.Device, method string, digits lastDigi
 		sw.Result.Choose(method)
 		rs = append(rs, sw.Result)
 		dirs = append(dirs, string(sw.Direction))
-		swept = append(swept, fit.Swept{Curve: sw.Curve, Setup: setup, Direction: string(sw.Direction)})
+		swept = append(swept, fit.Swept{Curve: sw.Curve, Setup: setup, Direction: string(sw.Direction), Result: sw.Result})
 	}
 	d.Result = fit.Combine(rs, dirs)
 	fit.Drift(swept, &d.Result)
