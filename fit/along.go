@@ -80,6 +80,7 @@ type along struct {
 	doubt    float64   // by how much more than usual the model is wrong here, as a factor
 	model    []float64 // A, of each point: the part of sigma that is the model's
 	got      lsq.Fit
+	ofNoise  float64 // V, the part of the last reading's u that is scatter of the readings
 	r, jac   []float64
 	left     spreading
 	place    [2 * krigeSide]int // of its residuals
@@ -97,7 +98,7 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	if !t.choose() || !t.begin() {
 		return false
 	}
-	var v, u, gm, cost [len(feet)]float64
+	var v, u, gm, cost, random [len(feet)]float64
 	begin := t.p
 	best := math.Inf(1)
 	for k, foot := range feet {
@@ -105,7 +106,7 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 		cost[k] = math.Inf(1)
 		if t.lay(best + plainlyWorse) {
 			v[k], u[k], gm[k] = t.read()
-			cost[k] = t.cost
+			cost[k], random[k] = t.cost, t.ofNoise
 		}
 		if !(u[k] < math.Inf(1)) {
 			cost[k] = math.Inf(1)
@@ -115,13 +116,14 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	if math.IsInf(best, 1) {
 		return false
 	}
-	var sum, mean, second, slope float64
+	var sum, mean, second, slope, scatter float64
 	for k := range feet {
 		if share := math.Exp((best - cost[k]) / 2); share > 1e-3 {
 			sum += share
 			mean += share * v[k]
 			second += share * (u[k]*u[k] + v[k]*v[k])
 			slope += share * gm[k]
+			scatter += share * random[k] * random[k]
 		}
 	}
 	mean /= sum
@@ -131,6 +133,7 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 		return false
 	}
 	c.v, c.u, c.gm, c.n = mean, all, slope/sum, len(t.vg)
+	c.random = math.Sqrt(scatter / sum)
 	return true
 }
 
@@ -373,6 +376,7 @@ func (t *along) read() (v, u, gm float64) {
 	if debugAlong != nil {
 		debugAlong(t)
 	}
+	t.ofNoise = math.Sqrt(random)
 	return v, math.Sqrt(random + model), slope
 }
 

@@ -154,16 +154,6 @@ func (w *work) byCurrent(r *Result) {
 	}
 }
 
-// crossingQuantity makes a quantity of a crossing: the gate meter's statement
-// and the current's over the slope go into the absolute uncertainty.
-func (w *work) crossingQuantity(c crossing, i float64) Quantity {
-	if math.IsNaN(c.v) {
-		return None()
-	}
-	u := math.Max(c.u, w.stepFloor(c.b))
-	return w.gateQuantity(c.v, u, w.relativeUsed(i)*i/c.gm, c.n)
-}
-
 // tellCrossing warns of what is wrong with a crossing and gives the sentence
 // for the state when it has no value.
 func (w *work) tellCrossing(c crossing, i float64) (why string) {

@@ -49,7 +49,7 @@ func (c testCell) bar() float64 {
 // testMode is how the sweeps of a run are read.
 type testMode struct {
 	both  bool // load circuits are read by an ammeter as well
-	gains bool // meters and resistor are off within their statements, which are given; judged by UAbsolute
+	gains bool // meters and resistor are off within their statements, which are given, and the part is not at the temperature taken; judged by UAbsolute
 }
 
 // cellResult is what was found in one cell.
@@ -214,19 +214,23 @@ func (d *denseCurve) draw(r *rand.Rand, b testBench, m testMode, step float64) (
 	}
 	isLoad := s.Circuit == Load
 	ammeter := !isLoad || m.both
+	warm := 0.0 // V, what the temperature takes off the threshold: that was not recorded, and within 3 K
+	if m.gains {
+		warm = (3e-3 + 2e-3*r.Float64()) * 3 * (2*r.Float64() - 1)
+	}
 	var c Curve
 	grid := [3]float64{math.Inf(1), math.Inf(1), math.Inf(1)} // last digits of gate, current, load
 	from, to := d.span()
 	for v := from + step*r.Float64(); len(c.Vg) < testMaxCount; v += step {
 		// Beyond the ends of the dense curve there is nothing to draw from.
 		at := v + step*testJitter*(2*r.Float64()-1)
-		if at < d.v[0] {
+		if at < d.v[0] || at+warm < d.v[0] {
 			continue
 		}
-		if at > to {
+		if at > to || at+warm > d.v[len(d.v)-1] {
 			break
 		}
-		i := d.at(at)
+		i := d.at(at + warm)
 		sign := 1.0
 		if s.PChannel {
 			sign = -1
