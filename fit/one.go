@@ -95,27 +95,33 @@ func stateCode(s State) string {
 	return ""
 }
 
-// tellAccuracy says which statement is missing for an absolute uncertainty.
+// tellAccuracy says which statement is missing for the uncertainties that need them.
 func (w *work) tellAccuracy() {
-	missing := ""
+	missing, between := "", false // the tolerance of R_L alone does not matter between sessions
 	if p := w.pts[len(w.pts)-1]; math.IsNaN(rangeFor(w.s.Gate, p.vg).absolute(p.vg)) {
-		missing = "the gate meter's accuracy"
+		missing, between = "the gate meter's accuracy", true
 	}
 	if math.IsNaN(w.relativeUsed(w.pts[len(w.pts)-1].i)) {
 		if missing != "" {
 			missing += " and "
 		}
-		onLoad := w.onLoad || !w.ammeter
+		onLoad := w.onScaleOfLoad()
+		stated := !math.IsNaN(w.scaleAt(w.pts[len(w.pts)-1].i, onLoad).offset)
+		between = between || !stated
 		switch {
 		case !onLoad:
 			missing += "the ammeter's accuracy"
-		case math.IsNaN(w.s.RLTol):
+		case stated:
 			missing += "the tolerance of R_L"
 		default:
 			missing += "the accuracy of the meter at the load resistor"
 		}
 	}
-	if missing != "" {
+	switch {
+	case missing == "":
+	case between:
+		w.warn(CodeNoAccuracy, "Not given: "+missing+"; no uncertainty between sessions and no absolute one.")
+	default:
 		w.warn(CodeNoAccuracy, "Not given: "+missing+"; no absolute uncertainty.")
 	}
 }
