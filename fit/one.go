@@ -133,6 +133,8 @@ func (w *work) byCurrent(r *Result) {
 	r.Crossings = test.count
 	r.Vgsth = w.crossingQuantity(test, w.s.TestCurrent)
 	r.VgsIdle = w.crossingQuantity(idle, w.s.IdleCurrent)
+	r.ReadTest = w.readOn(test.b-1, test.b+1, w.s.TestCurrent, w.s.TestCurrent/test.gm)
+	r.ReadIdle = w.readOn(idle.b-1, idle.b+1, w.s.IdleCurrent, w.s.IdleCurrent/idle.gm)
 	w.transconductances(r, idle)
 
 	why := ""

@@ -99,6 +99,8 @@ type Result struct {
 	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
 	GmRising  bool                 // GmMax lies at the end of the sweep: a longer one would give more
 	Shape     Shape                // of the curve, beside its thresholds
+	ReadTest  ReadOn               // ranges on which the readings behind Vgsth were taken
+	ReadIdle  ReadOn               // the same of VgsIdle
 	Crossings int                  // upward crossings of the test current
 	Levels    []Level              // the curve itself: gate voltages at the currents of [LevelCurrents] inside the sweep, ascending by current
 	LeftOut   []LeftOut            // ascending by Index

@@ -51,6 +51,8 @@ func (w *work) spot(r *Result) {
 	}
 	r.Vgsth = w.spotAt(w.s.TestCurrent)
 	r.VgsIdle = w.spotAt(w.s.IdleCurrent)
+	r.ReadTest = w.readOn(0, len(w.pts), w.s.TestCurrent, w.spotPerCurrent(&w.pts[0], w.s.TestCurrent))
+	r.ReadIdle = w.readOn(0, len(w.pts), w.s.IdleCurrent, w.spotPerCurrent(&w.pts[0], w.s.IdleCurrent))
 	w.spotGain(r)
 	asked, got := 0, 0
 	for _, x := range [...]struct {
