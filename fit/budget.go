@@ -15,7 +15,7 @@ const (
 	InGateScatter                // of the gate reading
 	InGateStep                   // step of the gate display
 	InCurrentNoise               // noise and counts of the current
-	InReading                    // reading between points, and the model there
+	InReading                    // what the curve may be between the points
 	InSweeps                     // what several sweeps differ by, or share beside their own scatter
 	InGateOffset                 // counts of the gate meter's statement
 	InCurrentOffset              // counts of the statement of the meter of the current
@@ -182,7 +182,7 @@ var inputInfos = [inputCount]struct{ name, unit, kind, shape string }{
 	InGateScatter:   {"gate meter scatter", "V", "A", normal},
 	InGateStep:      {"gate display step", "V", "B", rectangular},
 	InCurrentNoise:  {"current noise and counts", "%", "B", rectangular},
-	InReading:       {"reading between points", "V", "B", normal},
+	InReading:       {"curve between the points", "V", "B", normal},
 	InSweeps:        {"difference of the sweeps", "", "A", normal},
 	InGateOffset:    {"gate meter offset", "V", "B", rectangular},
 	InCurrentOffset: {"offset", "A", "B", rectangular},

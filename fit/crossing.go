@@ -120,13 +120,7 @@ func (w *work) gateAt(iref float64) crossing {
 	if c.count > 1 && c.hi-c.lo < 6*e {
 		c.b = (c.b + last + 1) / 2 // noise, not hysteresis: between them
 	}
-	if along := c; w.readAlong(&along, iref) {
-		// Where the load resistor takes over the plain rules may know better.
-		if w.along.squeezed && w.interpolate(&c, iref, e) && c.u < along.u {
-			along = c
-		}
-		c = along
-	} else if !w.interpolate(&c, iref, e) {
+	if !w.readAlong(&c, iref) && !w.interpolate(&c, iref, e) {
 		w.bounds(&c, iref, e)
 	}
 	w.judgeGrid(&c, iref)

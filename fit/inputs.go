@@ -191,16 +191,17 @@ func (w *work) addReading(b *budget, c *crossing, i float64) (nu float64) {
 }
 
 // lineQuantity makes a quantity of an extrapolated gate voltage v: scatter u of the
-// points, V, at least the step of the display near index b; what the equation may be
-// wrong by, V; the gate meter's statement; the temperature; and perOffset, V/A, by
+// points, V, at least the step of the display near index b; by how much curves that
+// do nearly as well differ, V; what the equation may be wrong by, V; the gate meter's statement; the temperature; and perOffset, V/A, by
 // which it follows an offset of all currents at about i.
 //
 // A gain of the currents does not move it: the root of c I meets zero at the same
 // gate voltage.
-func (w *work) lineQuantity(v, u, model float64, b, n int, nu, i, perOffset float64) Quantity {
+func (w *work) lineQuantity(v, u, others, model float64, b, n int, nu, i, perOffset float64) Quantity {
 	var bud budget
 	bud.add(InScatter, u, 1)
 	bud.raise(w.stepFloor(b))
+	bud.add(InReading, others, 1)
 	bud.add(InModel, model, 1)
 	w.addGate(&bud, v)
 	w.addCurrent(&bud, i, 0, perOffset)

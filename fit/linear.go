@@ -173,7 +173,7 @@ func (w *work) tangent(r *resistive) (Threshold, bool) {
 	nu := float64(n - 2)
 	// G is β (x - V_T): an offset of the current is one of G, over V_DS.
 	perOffset := -1 / (b * r.vds[l.from])
-	t.Vt = w.lineQuantity(vt, uvt, l.model(), (t.From+t.To)/2, n, nu, i, perOffset)
+	t.Vt = w.lineQuantity(vt, uvt, 0, l.model(), (t.From+t.To)/2, n, nu, i, perOffset)
 	t.Beta = w.gainQuantity(b, ub, n, nu, i, follows{current: 1, gate: 1, beta: 1})
 	return t, true
 }
@@ -243,7 +243,7 @@ func (w *work) ratioMethod(r *resistive) (t Threshold, theta Quantity, ok bool) 
 	t = Threshold{From: r.from[from], To: w.oneBeyond(r, to)}
 	nu := float64(m - 2)
 	perOffset := -1 / (b * b * r.vds[from])
-	t.Vt = w.lineQuantity(vt, uvt, l.model(), (t.From+t.To)/2, m, nu, i, perOffset)
+	t.Vt = w.lineQuantity(vt, uvt, 0, l.model(), (t.From+t.To)/2, m, nu, i, perOffset)
 	t.Beta = w.gainQuantity(b*b, ubeta, m, nu, i, follows{current: 1, gate: 1, beta: 1})
 	over := w.gainBudget(th, uth, i, follows{gate: 1, beta: 1})
 	if x := r.x[to-1] - vt; x > 0 { // θ = (β x/G - 1)/x

@@ -157,7 +157,7 @@ func (w *work) squareRoot() (Threshold, bool) {
 	i := w.pts[l.to-1].i
 	t := Threshold{From: l.from, To: l.to}
 	nu := float64(n - 2)
-	t.Vt = w.lineQuantity(vt, uvt, l.model(), (l.from+l.to)/2, n, nu, i, w.perOffset(i, n, func(k int) (c, current float64) {
+	t.Vt = w.lineQuantity(vt, uvt, 0, l.model(), (l.from+l.to)/2, n, nu, i, w.perOffset(i, n, func(k int) (c, current float64) {
 		return -l.toZero(vt, k) / (2 * math.Max(l.y[k], l.floor[k])), l.y[k] * l.y[k]
 	}))
 	t.Beta = w.gainQuantity(2*b*b, 4*b*ub, n, nu, i, follows{current: 1, gate: 2, beta: 1})

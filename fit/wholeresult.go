@@ -34,6 +34,8 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	for j := range t.vg {
 		if !t.apart[j] {
 			n++
+		}
+		if !t.apart[j] || math.Abs(t.residual(j)) < plainlyOff {
 			continue
 		}
 		p := &w.pts[t.from[j]]
@@ -42,7 +44,7 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	random, model, offset := t.spread(w)
 	top, nu := slices.Max(t.i), float64(n-len(t.free))
 	out := Threshold{From: t.from[0], To: t.from[len(t.from)-1] + 1}
-	out.Vt = w.lineQuantity(t.p[parVt], random[0], model[0], t.middle(), n, nu, top, offset[0])
+	out.Vt = w.lineQuantity(t.p[parVt], random[0], t.between, model[0], t.middle(), n, nu, top, offset[0])
 	beta := math.Exp(t.p[parBeta])
 	b := w.gainBudget(beta, beta*random[1], top, follows{current: 1, gate: 2, beta: 1})
 	w.addCurrent(&b, top, beta, beta*offset[1])
@@ -118,9 +120,9 @@ func (t *whole) farthest() string {
 // what it changes by per A that the meter of the current is off at the greatest one.
 func (t *whole) spread(w *work) (random, model, offset [parCount]float64) {
 	m, n := t.rows(), len(t.free)
-	buf := make([]float64, m*(n+2))
-	all, r, jac := buf[:m], buf[m:2*m], buf[2*m:]
-	if !t.eval(t.got.P, r, jac) {
+	t.room(m, n)
+	jac := t.jac
+	if !t.eval(t.got.P, t.r, jac) {
 		return
 	}
 	top := slices.Max(t.i)
@@ -138,10 +140,10 @@ func (t *whole) spread(w *work) (random, model, offset [parCount]float64) {
 			y := h / t.sigma[j] * t.floor(j, top)
 			a += x * x
 			b += y * y
-			all[j] = h / t.sigma[j]
+			t.r[j] = h / t.sigma[j]
 		}
 		random[f], model[f] = math.Sqrt(a), math.Sqrt(b)
-		offset[f] = w.perOffset(top, len(t.vg), func(j int) (c, current float64) { return all[j], t.i[j] })
+		offset[f] = w.perOffset(top, len(t.vg), func(j int) (c, current float64) { return t.r[j], t.i[j] })
 	}
 	return random, model, offset
 }
