@@ -1,7 +1,9 @@
 package fit
 
 import (
+	"cmp"
 	"math"
+	"slices"
 
 	"gatesill/fit/stats"
 )
@@ -141,6 +143,23 @@ type Contribution struct {
 // Share is what the line contributes to the standard uncertainty of the quantity, in
 // its unit.
 func (c Contribution) Share() float64 { return math.Abs(c.C * c.U) }
+
+// Largest gives the lines with the largest contribution first; those that are not
+// known come before all others.
+func (b *Budget) Largest() []Contribution {
+	out := slices.Clone(b.Lines)
+	slices.SortStableFunc(out, func(x, y Contribution) int {
+		a, b := x.Share(), y.Share()
+		if math.IsNaN(a) != math.IsNaN(b) {
+			if math.IsNaN(a) {
+				return -1
+			}
+			return 1
+		}
+		return cmp.Compare(b, a)
+	})
+	return out
+}
 
 // Total is one of the three uncertainties with its interval.
 type Total struct {

@@ -48,7 +48,7 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	beta := math.Exp(t.p[parBeta])
 	b := w.gainBudget(beta, beta*random[1], top, follows{current: 1, gate: 2, beta: 1})
 	w.addCurrent(&b, top, beta, beta*offset[1])
-	b.add(InModel, model[1], beta)
+	b.add(InModel, beta*model[1], 1)
 	out.Beta = w.quantity(beta, &b, n, nu)
 	b = w.gainBudget(t.p[parTheta], random[3], top, follows{gate: 1, beta: 1})
 	w.addCurrent(&b, top, 0, offset[3])
