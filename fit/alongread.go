@@ -55,6 +55,7 @@ var alongOptions = lsq.Options{MaxEvals: 40, Cosine: 2e-3, JacobianWithTrial: tr
 // readings are those of one crossing by different models.
 type readings struct {
 	v, u, gm, ugm, cost [len(kneeShapes) * (gainSteps + 1)]float64 // V, V, S, S
+	random              [len(kneeShapes)*(gainSteps+1) + 1]float64 // V², the part of u² that is scatter of the points
 	n                   int
 	best                float64 // least cost
 }
@@ -89,6 +90,17 @@ func (s *readings) mean() (v, u, gm, ugm float64) {
 	return v, math.Sqrt(second / sum), gm, math.Sqrt(slopes / sum)
 }
 
+// scatter is the part of the u of mean that is scatter of the points, V.
+func (s *readings) scatter() float64 {
+	var sum, random float64
+	for k := range s.n {
+		share := math.Exp((s.best - s.cost[k]) / temper)
+		sum += share
+		random += share * s.random[k]
+	}
+	return math.Sqrt(random / sum)
+}
+
 // readAlong reads the crossing c at iref off the device's own curve: the transfer
 // model, laid through the points around the current asked for, corrected by what it
 // leaves over there. False where the plain rules have to do: points near enough to
@@ -121,6 +133,7 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 		return false
 	}
 	c.v, c.u, c.gm, c.ugm, c.n = v, u, gm, ugm, len(t.vg)
+	c.random = s.scatter()
 	return true
 }
 
@@ -271,6 +284,7 @@ func (t *along) read() (v, u, gm float64) {
 		}
 	}
 	random, model := t.scatterOfReading()
+	t.readings.random[t.readings.n] = random
 	model *= modelPart * math.Max(0.1, math.Min(t.fits(), 9))
 	return t.at + value, math.Sqrt(random + model + gap*gap), gm
 }
@@ -305,7 +319,7 @@ const (
 // slopeScatter is the standard deviation of the slope gm of the curve, S.
 func (t *along) slopeScatter(gm float64) float64 {
 	one := t.random(t.b) / t.slope[t.b]
-	return gm * rss(rss(bendShare*t.left.size/krigeReach, one/slopeBase), leastBend)
+	return gm * rss(rss(bendShare*t.left.seen()/krigeReach, one/slopeBase), leastBend)
 }
 
 // leftOver gathers what the model leaves over at the points around the crossing, in

@@ -35,6 +35,7 @@ const (
 type crossing struct {
 	v       float64 // V, n-channel sign; NaN: none
 	u       float64 // V, random part, interpolation included
+	random  float64 // V, the part of u that is scatter of the readings; 0: not told apart
 	gm      float64 // S, slope of the curve there
 	ugm     float64 // S, its random uncertainty where the reading was made along the model, else NaN
 	n       int     // points it rests on
@@ -167,7 +168,7 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 		other = w.grow(o2, b, lo, hi, best.n/2, iref, e)
 	}
 	c.v, c.gm, c.n = best.v, best.gm, best.n
-	c.u = best.u
+	c.u, c.random = best.u, best.u
 	if other.ok() {
 		// Where one of the two is straight the other tells nothing.
 		c.u = rss(best.u, math.Min(math.Abs(best.v-other.v)/2, best.bend))
@@ -189,7 +190,7 @@ func (w *work) beforeCorner(c *crossing, iref, e float64) {
 	c.v, c.n = early+cornerShare*(late-early), 3
 	c.gm = 2 * y * (rise + chord) / 2
 	single := rss(rss(e, a.ux), a.u/c.gm)
-	c.u = rss(boundShare*(late-early), single)
+	c.u, c.random = rss(boundShare*(late-early), single), single
 }
 
 // estimate is one reading of the crossing by a local polynomial.
@@ -376,7 +377,7 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 	c.n = 2
 	c.gm = 2 * math.Sqrt(iref) * (math.Sqrt(b.i) - math.Sqrt(math.Max(a.i, 0))) / (b.vg - a.vg)
 	single := rss(rss(e, b.ux), b.u/c.gm)
-	c.u = rss(boundShare*(hi-lo), single)
+	c.u, c.random = rss(boundShare*(hi-lo), single), single
 }
 
 // atFirst reads the first point itself, which carries the current within a
@@ -384,6 +385,7 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 func (w *work) atFirst(c *crossing, iref, e float64) {
 	p := &w.pts[0]
 	c.v, c.n, c.u = p.vg, 1, rss(e, p.ux)
+	c.random = c.u
 	if len(w.pts) < 2 {
 		return
 	}
@@ -395,6 +397,7 @@ func (w *work) atFirst(c *crossing, iref, e float64) {
 	c.gm = 2 * math.Sqrt(iref) * s
 	c.v += (math.Sqrt(iref) - math.Sqrt(p.i)) / s
 	c.u = rss(c.u, p.u/c.gm)
+	c.random = c.u
 }
 
 // belowCounts reads a current of less than three counts: single readings there
@@ -428,6 +431,7 @@ func (w *work) belowCounts(c *crossing, iref float64) {
 		return
 	}
 	c.v, c.gm, c.n = v, slope, m
+	c.random = w.poly.scatter(v, s[:m], false) / slope
 	// An exponential foot is no parabola: a quarter of the step is doubtful, and
 	// a count is worth at least what it is on an exponential of n = 1.4.
 	c.u = rss(w.poly.scatter(v, s[:m], false)/slope, (b-a)/4)

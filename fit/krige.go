@@ -44,6 +44,15 @@ type spreading struct {
 	k, l    [2 * krigeSide]kriged
 }
 
+// seen is the size of what is left over at the points beyond their noise, V.
+func (p *spreading) seen() float64 {
+	sum := 0.0
+	for i := range p.n {
+		sum += p.r[i]*p.r[i] - p.s[i]*p.s[i]
+	}
+	return math.Sqrt(math.Max(0, sum/math.Max(1, float64(p.n))))
+}
+
 // alike is the correlation of what is left over at a distance, V.
 func alike(d float64) float64 {
 	z := math.Sqrt(5) * math.Abs(d) / krigeReach
