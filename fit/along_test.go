@@ -106,12 +106,13 @@ func TestPlainlyWrongKneeIsLeft(t *testing.T) {
 // their difference is part of the uncertainty.
 func TestReadingsMean(t *testing.T) {
 	s := &readings{best: math.Inf(1)}
-	s.add(1, 1e-3, 2, 5)
-	s.add(1.004, 1e-3, 2, 5)
-	s.add(3, 1e-3, 2, 500)
-	s.add(9, math.Inf(1), 2, 0) // no reading
-	v, u, gm := s.mean()
+	s.add(1, 1e-3, 1.9, 0.03, 5)
+	s.add(1.004, 1e-3, 2.1, 0.03, 5)
+	s.add(3, 1e-3, 7, 0.03, 500)
+	s.add(9, math.Inf(1), 2, 1, 0) // no reading
+	v, u, gm, ugm := s.mean()
 	near(t, "mean", v, 1.002, 1e-9)
 	near(t, "u", u, math.Hypot(1e-3, 2e-3), 1e-9)
 	near(t, "slope", gm, 2, 1e-9)
+	near(t, "u of the slope", ugm, math.Hypot(0.03, 0.1), 1e-9)
 }

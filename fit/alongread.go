@@ -35,8 +35,14 @@ const (
 	// the shapes is the part's own, and readings of shapes that do about equally well
 	// must all stay in view (chosen on levels 1 and 3 of the simulator).
 	temper = 4
+	// clearOfKnee is how far above the threshold, V, the shapes of the knee no longer
+	// differ: 3.5 times 2 n kT/q, where a smooth one is within 3 % of the straight line.
+	clearOfKnee = 3.5 * 2 * usualN * thermalVoltage
 	// alongPasses is how often the weights follow the fit.
 	alongPasses = 4
+	// settled is the change of the reading, V, below which the weights need not
+	// follow any more.
+	settled = 10e-6
 	// atEdge is how far outside the two points around it, as a share of their
 	// distance, a crossing may lie besides noise.
 	atEdge = 0.02
@@ -51,25 +57,25 @@ var alongOptions = lsq.Options{MaxEvals: 40, Cosine: 2e-3, JacobianWithTrial: tr
 
 // readings are those of one crossing by different models.
 type readings struct {
-	v, u, gm, cost [len(kneeShapes) * (gainSteps + 1)]float64 // V, V, S
-	random         [len(kneeShapes)*(gainSteps+1) + 1]float64 // V², the part of u² that is scatter of the points
-	n              int
-	best           float64 // least cost
+	v, u, gm, ugm, cost [len(kneeShapes) * (gainSteps + 1)]float64 // V, V, S, S
+	random              [len(kneeShapes)*(gainSteps+1) + 1]float64 // V², the part of u² that is scatter of the points
+	n                   int
+	best                float64 // least cost
 }
 
-func (s *readings) add(v, u, gm, cost float64) {
+func (s *readings) add(v, u, gm, ugm, cost float64) {
 	if !(u < math.Inf(1)) || math.IsNaN(cost) || math.IsNaN(v) {
 		return
 	}
-	s.v[s.n], s.u[s.n], s.gm[s.n], s.cost[s.n] = v, u, gm, cost
+	s.v[s.n], s.u[s.n], s.gm[s.n], s.ugm[s.n], s.cost[s.n] = v, u, gm, ugm, cost
 	s.n++
 	s.best = math.Min(s.best, cost)
 }
 
 // mean is their mean, weighted by how well each model describes the points, with the
-// standard deviation of the mixture.
-func (s *readings) mean() (v, u, gm float64) {
-	var sum, second float64
+// standard deviations of the mixture.
+func (s *readings) mean() (v, u, gm, ugm float64) {
+	var sum, second, slopes float64
 	for k := range s.n {
 		share := math.Exp((s.best - s.cost[k]) / temper)
 		sum += share
@@ -81,8 +87,10 @@ func (s *readings) mean() (v, u, gm float64) {
 		share := math.Exp((s.best - s.cost[k]) / temper)
 		d := s.v[k] - v
 		second += share * (s.u[k]*s.u[k] + d*d)
+		d = s.gm[k] - gm
+		slopes += share * (s.ugm[k]*s.ugm[k] + d*d)
 	}
-	return v, math.Sqrt(second / sum), gm
+	return v, math.Sqrt(second / sum), gm, math.Sqrt(slopes / sum)
 }
 
 // scatter is the part of the u of mean that is scatter of the points, V.
@@ -101,7 +109,7 @@ func (s *readings) scatter() float64 {
 // leaves over there. False where the plain rules have to do: points near enough to
 // each other, too few, or none that the model describes.
 //
-// Result: c.v and c.u, V; c.gm, S; c.n points. Checked: TestTestSet,
+// Result: c.v and c.u, V; c.gm and c.ugm, S; c.n points. Checked: TestTestSet,
 // TestOutsideCurves, TestUncertaintyIsHonest.
 func (w *work) readAlong(c *crossing, iref float64) bool {
 	if c.b < 1 || w.pts[c.b].vg-w.pts[c.b-1].vg <= fineStep {
@@ -115,19 +123,23 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	s := &t.readings
 	s.n, s.best = 0, math.Inf(1)
 	begin := t.p
-	for k := range kneeShapes {
+	shapes := kneeShapes[:]
+	if t.vg[t.a]-t.p[parVt] > clearOfKnee && !t.squeezed {
+		shapes = shapes[:1] // they differ below only
+	}
+	for k := range shapes {
 		t.p = begin
-		t.take(&kneeShapes[k])
+		t.take(&shapes[k])
 	}
 	if s.n == 0 {
 		return false
 	}
-	v, u, gm := s.mean()
+	v, u, gm, ugm := s.mean()
 	a, b := t.vg[t.a], t.vg[t.b]
 	if most := 3*rss(t.noise, w.pts[c.b].ux) + atEdge*(b-a); v < a-most || v > b+most {
 		return false
 	}
-	c.v, c.u, c.gm, c.n = v, u, gm, len(t.vg)
+	c.v, c.u, c.gm, c.ugm, c.n = v, u, gm, ugm, len(t.vg)
 	c.random = s.scatter()
 	return true
 }
@@ -145,7 +157,7 @@ func (t *along) take(k *kneeShape) {
 		return
 	}
 	v, u, gm := t.read()
-	t.readings.add(v, u, gm, t.cost)
+	t.readings.add(v, u, gm, t.slopeScatter(gm), t.cost)
 }
 
 // lay fits the model; false where it comes to nothing, or is plainly worse than
@@ -163,6 +175,7 @@ func (t *along) lay(rare float64) bool {
 		if math.IsNaN(v) {
 			return false
 		}
+		moved := math.Abs(v - t.at)
 		t.at = v
 		if pass < 1 {
 			continue
@@ -173,7 +186,11 @@ func (t *along) lay(rare float64) bool {
 				return false
 			}
 		}
-		t.doubt = math.Max(1, math.Min(t.doubt*math.Sqrt(t.fits()), mostDoubt))
+		before := t.doubt
+		t.doubt = math.Max(1, math.Min(before*math.Sqrt(t.fits()), mostDoubt))
+		if t.doubt < 1.1*before && moved < settled {
+			break
+		}
 	}
 	return true
 }
@@ -226,7 +243,7 @@ func (t *along) takeGains() {
 		}
 		t.at = v
 		v, u, gm := t.read()
-		t.readings.add(v, u, gm, cost+more*temper/2) // of one shape, true likelihoods
+		t.readings.add(v, u, gm, t.slopeScatter(gm), cost+more*temper/2) // of one shape, true likelihoods
 	}
 	t.free = append(t.free[:0], parVt, parBeta, parN, parTheta, parLambda, parTop)
 }
@@ -265,6 +282,7 @@ func (t *along) read() (v, u, gm float64) {
 	}
 	gm = t.derive()
 	t.leftOver()
+	t.left.usual = rss(krigeUsual, krigeShare*t.iref/gm)
 	value, gap := t.left.at(t.at)
 	for k := range t.left.n {
 		j := t.place[k]
@@ -292,6 +310,23 @@ func (t *along) derive() float64 {
 		t.by[k] = -dp[par] / slope
 	}
 	return slope
+}
+
+const (
+	// bendShare is the share of the slope of what the model leaves over, its size over
+	// the distance on which it changes, that a slope of the model is wrong by, and
+	// slopeBase the distance, V, over which the scatter of the points tells of a slope
+	// (chosen on levels 1 and 3 of the simulator). leastBend is what the slope of any
+	// model is wrong by (judgement).
+	bendShare = 0.5
+	slopeBase = 0.15
+	leastBend = 0.003
+)
+
+// slopeScatter is the standard deviation of the slope gm of the curve, S.
+func (t *along) slopeScatter(gm float64) float64 {
+	one := t.random(t.b) / t.slope[t.b]
+	return gm * rss(rss(bendShare*t.left.seen()/krigeReach, one/slopeBase), leastBend)
 }
 
 // leftOver gathers what the model leaves over at the points around the crossing, in

@@ -26,3 +26,27 @@ func BenchmarkOne(b *testing.B) {
 		})
 	}
 }
+
+// A curve with most of its range changes spoiled costs a search for the points that
+// fit together; up and down sweep cost a comparison.
+func BenchmarkFaults(b *testing.B) {
+	g := glitchCase{simBench{circuit: Fixed, vds: 10}, 0.05, "A", 10e-3}
+	bad, _, _, _ := g.draw(randomSource(8), handheld(), 0.8)
+	s := g.bench.setup()
+	s.TestCurrent = 10e-3
+	b.Run("glitched", func(b *testing.B) {
+		b.ReportAllocs()
+		for b.Loop() {
+			One(bad, s)
+		}
+	})
+	c, t := thirtyPoints(Diode)
+	b.Run("drift", func(b *testing.B) {
+		b.ReportAllocs()
+		r := One(c, t)
+		sweeps := []Swept{{c, t, "up", r}, {c, t, "down", r}}
+		for b.Loop() {
+			Drift(sweeps, &r)
+		}
+	})
+}

@@ -12,12 +12,12 @@ const (
 	mostInARow = 6
 	// costOfPoint is that of leaving out a point without any further sign of a
 	// fault; costAfterChange that of one just after a change of range;
-	// costOfLeftover that of one that repeats, to the last digit, one of the two
-	// readings before it; costOfEnd that of one that stands at the end of a range.
-	costOfPoint     = 1.0
-	costAfterChange = 0.7
-	costOfLeftover  = 0.55
-	costOfEnd       = 0.4
+	// costOfRepetition that of one that repeats, to the last digit, one of the two
+	// readings before it; costOfEndOfRange that of one that stands at the end of a range.
+	costOfPoint      = 1.0
+	costAfterChange  = 0.7
+	costOfRepetition = 0.55
+	costOfEndOfRange = 0.4
 	// costOfBreach is that of a point outside the bracket of its neighbours,
 	// costOfWide that of one outside by more than a factor of two, costOfFall that
 	// of a current that falls; costOfBend that of a point above the straight chord
@@ -70,74 +70,6 @@ func (w *work) newChain() *chain {
 	return h
 }
 
-// weigh says what it costs to leave each candidate out.
-func (h *chain) weigh() {
-	for y := range h.c {
-		c := &h.c[y]
-		c.cost = h.w.costOf(&c.point)
-	}
-}
-
-// costOf is what it costs to leave out a point: less for one that bears the signs
-// of a leftover.
-func (w *work) costOf(p *point) float64 {
-	ranges, column := w.s.Current, w.c.Id
-	if p.load {
-		ranges, column = w.s.Load, w.c.Vl
-		if w.byDrain {
-			ranges, column = w.s.Drain, w.c.Vd
-		}
-	}
-	k := p.k
-	x := at(column, k)
-	if k == 0 || !finiteNumber(x) {
-		return costOfPoint
-	}
-	cost := costOfPoint
-	for j := k - 1; j >= max(0, k-2); j-- {
-		if x == column[j] {
-			return costOfLeftover
-		}
-		if changed(ranges, column[j], column[j+1]) {
-			cost = costAfterChange
-		}
-	}
-	if cost < costOfPoint && endOfRange(ranges, x, column[k-1]) {
-		return costOfEnd
-	}
-	return cost
-}
-
-// endOfRange reports whether x is the end of a range: by the statement, else
-// because it lacks three of the digits that the reading before it has.
-func endOfRange(ranges []Accuracy, x, before float64) bool {
-	if len(ranges) > 1 {
-		for _, a := range ranges {
-			if math.Abs(math.Abs(x)-a.Top) <= 2*a.Resolution {
-				return true
-			}
-		}
-		return false
-	}
-	a, ok := decimals(x)
-	b, ok2 := decimals(before)
-	return ok && ok2 && b-a >= 3 && math.Abs(x)*pow10(a) < 10.5
-}
-
-// changed reports whether a meter was on different ranges for two readings: by
-// its statement, else by the last digits.
-func changed(ranges []Accuracy, x, y float64) bool {
-	if math.IsInf(x, 0) || math.IsInf(y, 0) {
-		return true
-	}
-	if len(ranges) > 1 {
-		return rangeFor(ranges, x).Top != rangeFor(ranges, y).Top
-	}
-	a, ok := decimals(x)
-	b, ok2 := decimals(y)
-	return ok && ok2 && a != b
-}
-
 // best is the cheapest set: the candidate kept for every point, -1 for none.
 func (h *chain) best() []int {
 	n := len(h.first) - 1
@@ -147,7 +79,11 @@ func (h *chain) best() []int {
 	for k := range h.cost {
 		h.cost[k] = math.Inf(1)
 	}
-	h.weigh()
+	costs := [...]float64{costOfPoint, costAfterChange, costOfRepetition, costOfEndOfRange}
+	for y := range h.c {
+		c := &h.c[y]
+		c.cost = costs[h.w.signOf(&c.point)]
+	}
 	before := make([]float64, n+1) // cost of leaving out all points before j
 	for j := range n {
 		least := math.Inf(1)

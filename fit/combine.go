@@ -14,7 +14,7 @@ const (
 	// in the knee is not known better (judgements; the same limits call heating).
 	sweepsApart  = 3
 	sweepsLeast  = 0.5e-3
-	sweepsCoarse = 30e-3
+	sweepsCoarse = 20e-3
 )
 
 // Combine makes one result of the sweeps of a device. Each sweep was evaluated
@@ -57,8 +57,8 @@ func Combine(rs []Result, dirs []string) Result {
 	for i := range rs {
 		r.GmRising = r.GmRising || rs[i].GmRising
 	}
+	r.VtBy = combineThresholds(rs, lead)
 	if len(rs) > 1 {
-		r.VtBy = combineThresholds(rs, lead)
 		r.Method = methodOf(rs, lead)
 		for _, k := range Keys {
 			if combineQuantity(&r, rs, k, lead) {
@@ -145,16 +145,10 @@ func combineQuantity(r *Result, rs []Result, k Key, lead int) bool {
 	for j := range rs {
 		q := *rs[j].At(k)
 		switch k {
-		case KeyVt, KeyBeta: // a sweep may have the method shown without showing it
-			if t, ok := rs[j].VtBy[r.Method]; ok && k == KeyVt {
-				q = t.Vt
-			} else if ok {
-				q = t.Beta
+		case KeyVt, KeyBeta, KeyTheta: // a sweep may have the method shown without showing it
+			if t, ok := rs[j].VtBy[r.Method]; ok {
+				q = t.of(k)
 			} else if rs[j].Method != r.Method {
-				continue
-			}
-		case KeyTheta:
-			if rs[j].Method != r.Method {
 				continue
 			}
 		}
@@ -191,6 +185,17 @@ func combineQuantity(r *Result, rs []Result, k Key, lead int) bool {
 	}
 	*r.At(k) = overStretches(qs, mine)
 	return true
+}
+
+// of is the quantity of a threshold that belongs to key k.
+func (t *Threshold) of(k Key) Quantity {
+	switch k {
+	case KeyBeta:
+		return t.Beta
+	case KeyTheta:
+		return t.Theta
+	}
+	return t.Vt
 }
 
 // coarseAt reports whether the points lie too far apart at the current of k: of
@@ -327,7 +332,7 @@ func disagreement(rs []Result, dirs []string, k Key) string {
 func combineThresholds(rs []Result, lead int) map[string]Threshold {
 	var out map[string]Threshold
 	for _, method := range [...]string{"sqrt", "linear", "ratio", "curve"} {
-		var vt, beta []Quantity
+		var vt, beta, theta []Quantity
 		t, ok := rs[lead].VtBy[method]
 		for j := range rs {
 			o, has := rs[j].VtBy[method]
@@ -338,11 +343,18 @@ func combineThresholds(rs []Result, lead int) map[string]Threshold {
 				t, ok = o, true
 			}
 			vt, beta = append(vt, o.Vt), append(beta, o.Beta)
+			if o.Theta.Ok() {
+				theta = append(theta, o.Theta)
+			}
 		}
 		if !ok {
 			continue
 		}
 		t.Vt, t.Beta = overStretches(vt, t.Vt), overStretches(beta, t.Beta)
+		if len(theta) > 0 && !t.Theta.Ok() {
+			t.Theta = theta[0]
+		}
+		t.Theta = overStretches(theta, t.Theta)
 		if out == nil {
 			out = make(map[string]Threshold, 2)
 		}

@@ -167,3 +167,88 @@ func TestDisagreementInWords(t *testing.T) {
 		}
 	}
 }
+
+// Self-made: twelve devices swept up and down over one grid of whole multiples of
+// the display's step. What the display rounds off is the same in both sweeps, and
+// averaging them does not make it less; over two sweeps of a dithered display it does.
+func TestCombineDisplayStep(t *testing.T) {
+	const step = 1e-3
+	r := randomSource(821)
+	d := simDevice{law: smoothLaw, vt: 3.3, beta: 4.8, n: 1.4}
+	for _, b := range offBenches {
+		s := b.setup()
+		s.Gate, s.TestCurrent, s.IdleCurrent = displayOnly(step), 10e-3, 150e-3
+		one := One(d.sweep(r, b, exact(), 2.6, 4, 0.02, 0), s)
+		two := Combine([]Result{one, one}, []string{"up", "down"})
+		for _, k := range []Key{KeyVgsth, KeyVgsIdle, KeyVt} {
+			u, floor := two.At(k).U, step/math.Sqrt(12)
+			if one.At(k).U > floor*1.001 {
+				continue // more than the step is in it
+			}
+			near(t, string(b.circuit)+": u of the mean of "+string(k), u, floor, 1e-9)
+		}
+		x := One(d.sweep(r, b, handheld(), 2.6, 4, 0.02, 0.01), s)
+		y := One(d.sweep(r, b, handheld(), 2.6, 4, 0.02, 0.01), s)
+		if u := Combine([]Result{x, y}, []string{"up", "up"}).VgsIdle.U; !(u < math.Max(x.VgsIdle.U, y.VgsIdle.U)) {
+			t.Errorf("%s: u of the mean %.3g V, of the sweeps %.3g and %.3g V", b.circuit, u, x.VgsIdle.U, y.VgsIdle.U)
+		}
+	}
+	// 1 and 1 mV, both the step: 1 mV. 1, 1 and 2 mV: the 1 mV stays, 1.7 mV of the third is its own.
+	at := func(u ...float64) float64 {
+		var rs []Result
+		for _, x := range u {
+			rs = append(rs, measured(3, x, 0))
+		}
+		return Combine(rs, []string{"up", "down", "up"}).Vgsth.U
+	}
+	near(t, "two at the step", at(1e-3, 1e-3), 1e-3, 1e-12)
+	weights := 1/1e-6 + 1/1e-6 + 1/4e-6
+	near(t, "and a worse one", at(1e-3, 1e-3, 2e-3), math.Sqrt(1e-6+3e-6/(4e-6*4e-6)/(weights*weights)), 1e-9)
+	near(t, "unlike ones", at(1e-3, 2e-3), 0.894427e-3, 1e-8)
+}
+
+// A threshold that one sweep shows and the other only has; one that the leading
+// sweep lacks; and values over different stretches, which are no disagreement.
+func TestCombineThresholds(t *testing.T) {
+	at := func(v, u float64) Threshold {
+		return Threshold{Vt: quantity(v, u, math.Hypot(u, 10e-3)), Beta: quantity(2, 0.01, 0.1), From: 3, To: 9}
+	}
+	a, b := measured(3, 1e-3, 0), measured(3, 1e-3, 0)
+	a.Method, a.Vt, a.VtBy = "curve", quantity(2.900, 1e-3, 0), map[string]Threshold{"curve": at(2.900, 1e-3), "sqrt": at(2.910, 1e-3)}
+	b.Method, b.Vt, b.VtBy = "sqrt", quantity(2.912, 1e-3, 0), map[string]Threshold{"sqrt": at(2.912, 1e-3)}
+	r := Combine([]Result{a, b}, []string{"up", "down"})
+	if r.Method != "curve" || r.Vt.Value != 2.9 {
+		t.Errorf("the leading sweep's method: %s %v", r.Method, r.Vt)
+	}
+	near(t, "both by the square root", r.VtBy["sqrt"].Vt.Value, 2.911, 1e-9)
+	near(t, "one by the curve", r.VtBy["curve"].Vt.Value, 2.900, 1e-12)
+	// Led by the one without the curve, both have the square root.
+	r = Combine([]Result{b, a}, []string{"up", "down"})
+	if r.Method != "sqrt" {
+		t.Errorf("method %s", r.Method)
+	}
+	near(t, "the mean of the method shown", r.Vt.Value, 2.911, 1e-9)
+	// The leading sweep has none at all.
+	a.Vt, a.VtBy, a.Method = None(), nil, "current"
+	r = Combine([]Result{a, b}, []string{"up", "down"})
+	if r.Method != "sqrt" || r.Vt.Value != 2.912 || r.VtBy["sqrt"].From != 3 {
+		t.Errorf("from the other sweep: %s %v", r.Method, r.Vt)
+	}
+	// 20 mV apart with 1 mV each, by one method over two stretches: the leading
+	// sweep's, widened to 10 mV, and no word of a disagreement.
+	c := b
+	c.Vt, c.VtBy = quantity(2.932, 1e-3, 0), map[string]Threshold{"sqrt": at(2.932, 1e-3)}
+	r = Combine([]Result{b, c}, []string{"up", "down"})
+	near(t, "V_T", r.Vt.Value, 2.912, 1e-12)
+	near(t, "u", r.Vt.U, 10e-3, 1e-9)
+	near(t, "absolute u", r.Vt.UAbsolute, math.Hypot(10e-3, 10e-3), 1e-5)
+	if r.Has(CodeSweepsDisagree) {
+		t.Errorf("codes %s", codesOf(r))
+	}
+	// Of the largest transconductances the greatest, and what is known of it.
+	a, b = measured(3, 1e-3, 0), measured(3, 1e-3, 0)
+	a.GmMax, a.GmRising, b.GmMax = quantity(1.5, 1e-3, 0), true, quantity(2.5, 1e-3, 0)
+	if r := Combine([]Result{a, b}, []string{"up", "down"}); r.GmMax.Value != 2.5 || r.GmRising || r.Has(CodeSweepsDisagree) {
+		t.Errorf("g_m(max) %v, rising %v, codes %s", r.GmMax, r.GmRising, codesOf(r))
+	}
+}

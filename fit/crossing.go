@@ -37,6 +37,7 @@ type crossing struct {
 	u       float64 // V, random part, interpolation included
 	random  float64 // V, the part of u that is scatter of the readings; 0: not told apart
 	gm      float64 // S, slope of the curve there
+	ugm     float64 // S, its random uncertainty where the reading was made along the model, else NaN
 	n       int     // points it rests on
 	count   int     // upward crossings
 	lo, hi  float64 // V, first and last upward crossing
@@ -48,25 +49,25 @@ type crossing struct {
 }
 
 func noCrossing() crossing {
-	return crossing{v: math.NaN(), u: math.NaN(), gm: math.NaN(), lo: math.NaN(), hi: math.NaN(), b: -1}
+	return crossing{v: math.NaN(), u: math.NaN(), gm: math.NaN(), ugm: math.NaN(), lo: math.NaN(), hi: math.NaN(), b: -1}
 }
 
 // gateAt finds the gate voltage at which the curve carries iref: V_GS(th) by
 // constant current, or the gate bias.
 //
-// First upward crossing in the order of gate voltage. Between the two points
-// around it a local polynomial in √I or ln I is solved for iref, in whichever
-// of the two the curve is straighter. The window grows from two points on
-// either side as long as the estimates agree within their scatter, so that
-// exact points are interpolated and coarse or noisy ones averaged. With a gap
-// on either side, or currents below three counts, the value is the middle of
-// the bounds that a transfer curve must keep (see bounds), or linear in √I.
+// First upward crossing in the order of gate voltage. Between points more than
+// 10.5 mV apart it is read along the device's own curve (see readAlong). Between
+// nearer ones, or where the model describes nothing, a local polynomial in √I or ln I
+// is solved for iref, in whichever of the two the curve is straighter. The window
+// grows from two points on either side as long as the estimates agree within their
+// scatter, so that exact points are interpolated and noisy ones averaged. With a gap
+// on either side, or currents below three counts, the value is the middle of the
+// bounds that a transfer curve must keep (see bounds), or linear in √I.
 //
-// Uses points with at least three counts. u is the scatter of the points taken
-// through the linear map of the polynomial, and, for interpolating, half the
-// difference between the two ordinates and a share of that between polynomials
-// leaning to either side; sigma is taken from the data and not below what is
-// stated for the meters.
+// Uses points with at least three counts. u of a polynomial is the scatter of the
+// points taken through its linear map, and, for interpolating, half the difference
+// between the two ordinates and a share of that between polynomials leaning to either
+// side; sigma is taken from the data and not below what is stated for the meters.
 //
 // Source: data-sheet convention for V_GS(th) (drain current stated, V_DS = V_GS
 // or fixed); review: A. Ortiz-Conde et al., Microelectronics Reliability 42

@@ -25,11 +25,13 @@ const (
 // warm within a sweep.
 var lags = [...]float64{0.5, 1.5, 5, 15, 50, 500}
 
-// Swept is one sweep of a device with what it was taken under.
+// Swept is one sweep of a device with what it was taken under and what [One] made
+// of it.
 type Swept struct {
 	Curve     Curve
 	Setup     Setup
 	Direction string // "up", "down", "spot", "": unknown
+	Result    Result
 }
 
 // Drift says why up and down sweep of one device lie apart, as far as their
@@ -37,8 +39,8 @@ type Swept struct {
 // on one or two currents alone. sweeps are in the order in which they were taken;
 // r is changed, sweeps are not.
 //
-// The gate voltages of the first up and the first down sweep are compared at
-// [LevelCurrents] inside both. Self-heating: the gap follows I_D V_DS, with a lag of
+// The gate voltages of the first up and the first down sweep are compared at the
+// levels of their results. Self-heating: the gap follows I_D V_DS, with a lag of
 // some points, and the warmer sweep needs less gate voltage. Gate history (trapped
 // charge, hysteresis): the gap is the same whatever the power, or grows with the
 // time between, evenly or as the gate was driven. All pictures are fitted with
@@ -51,8 +53,8 @@ type Swept struct {
 // Cannot be told apart: a heat sink that warms up over the whole sweep, and a
 // charge of the same sign that builds up over it.
 //
-// Uses points that are clean, currents at which the points do not lie too far
-// apart; at least three of them. Assumes equal times for all points.
+// Uses levels between points that do not lie too far apart, at least three of them.
+// Assumes equal times for all points.
 //
 // Source: heating of the channel and its lag, common practice; hysteresis of the
 // threshold: JEDEC JEP183A (scope only was seen). Checked: TestHeatingOrHistory,
@@ -68,7 +70,8 @@ func Drift(sweeps []Swept, r *Result) {
 	if !ok || !ok2 {
 		return
 	}
-	d := newDrift(a, b, down < up)
+	d := newDrift(a, b, sweeps[up].Result.Levels, sweeps[down].Result.Levels)
+	d.downFirst = down < up
 	if len(d.levels) < levelsApart {
 		return // too little for more than Combine says
 	}
@@ -104,22 +107,42 @@ type driftLevel struct {
 	a, b    int     // nearest points of the up and of the down sweep
 }
 
-func newDrift(up, down *work, downFirst bool) *drift {
-	d := &drift{up: up, down: down, downFirst: downFirst}
-	for _, i := range LevelCurrents {
-		p, q := up.gateAt(i), down.gateAt(i)
-		if math.IsNaN(p.v) || math.IsNaN(q.v) || p.coarse || q.coarse || p.limited || q.limited || p.b < 1 || q.b < 1 {
+func newDrift(up, down *work, ups, downs []Level) *drift {
+	d := &drift{up: up, down: down}
+	for len(ups) > 0 && len(downs) > 0 {
+		x, y := ups[0], downs[0]
+		if x.I <= y.I {
+			ups = ups[1:]
+		}
+		if y.I <= x.I {
+			downs = downs[1:]
+		}
+		if x.I != y.I {
 			continue
 		}
-		if p.count > 1 || q.count > 1 {
+		a, ok := up.levelAt(x.I)
+		b, ok2 := down.levelAt(y.I)
+		if !ok || !ok2 {
 			continue
 		}
-		l := driftLevel{i: i, d: p.v - q.v, a: p.b, b: q.b}
-		l.u = rss(math.Max(p.u, up.stepFloor(p.b)), math.Max(q.u, down.stepFloor(q.b)))
-		l.power = i * (up.pts[p.b].vds + down.pts[q.b].vds) / 2
-		d.levels = append(d.levels, l)
+		d.levels = append(d.levels, driftLevel{
+			i: x.I, d: up.sign*x.Vg - down.sign*y.Vg, u: rss(x.U, y.U),
+			power: x.I * (up.pts[a].vds + down.pts[b].vds) / 2, a: a, b: b,
+		})
 	}
 	return d
+}
+
+// levelAt is the first point at or above current i, and whether it and the one
+// before lie near enough to read a level between them.
+func (w *work) levelAt(i float64) (b int, ok bool) {
+	b = slices.IndexFunc(w.pts, func(p point) bool { return p.i >= i })
+	if b < 1 {
+		return b, false
+	}
+	p, q := &w.pts[b-1], &w.pts[b]
+	step := q.vg - p.vg
+	return b, p.above() && (step <= fineStep || 2*step > knee*(q.ln-p.ln))
 }
 
 // judge finds the picture that the gaps favour; false where there is no gap.

@@ -60,7 +60,7 @@ func TestHeatingOrHistory(t *testing.T) {
 	type outcome struct{ n, none, heating, unsure, history int }
 	run := func(what string, make func() warmDevice) outcome {
 		var o outcome
-		for k := range 30 {
+		for k := range 18 {
 			d := make()
 			d.simDevice = simDevice{law: smoothLaw, vt: 2 + 2*r.Float64(), beta: 1 + 5*r.Float64(), n: 1.2 + 0.4*r.Float64(), theta: 0.1 * r.Float64()}
 			b := []simBench{{circuit: Diode}, {circuit: Load, rl: 10, vdd: 12}, {circuit: Fixed, vds: 10}}[k%3]
@@ -78,43 +78,67 @@ func TestHeatingOrHistory(t *testing.T) {
 			sweeps[0].Curve = d.read(r, b, m, up, &rise, &charge)
 			charge += d.memory
 			sweeps[1].Curve = d.read(r, b, m, down, &rise, &charge)
-			res := Combine([]Result{One(sweeps[0].Curve, s), One(sweeps[1].Curve, s)}, []string{"up", "down"})
+			for j := range sweeps {
+				sweeps[j].Result = One(sweeps[j].Curve, s)
+			}
+			res := Combine([]Result{sweeps[0].Result, sweeps[1].Result}, []string{"up", "down"})
 			Drift(sweeps, &res)
 			o.n++
 			text := warningText(res, CodeHeating)
 			switch {
 			case res.Has(CodeGateHistory):
 				o.history++
-				if o.history < 2 {
-					t.Log(what, b.circuit, warningText(res, CodeGateHistory))
-				}
 			case text == "":
 				o.none++
 			case strings.Contains(text, "cannot tell"):
 				o.unsure++
-				if o.unsure < 2 {
-					t.Log(what, b.circuit, text)
-				}
 			default:
 				o.heating++
-				if o.heating < 2 {
-					t.Log(what, b.circuit, text)
-				}
 			}
 		}
 		t.Logf("%-28s of %d: none %d, heating %d, cannot tell %d, history %d", what, o.n, o.none, o.heating, o.unsure, o.history)
 		return o
 	}
+	heating, n := 0, 0
 	for _, lag := range []float64{0.3, 1, 3, 10, 30, 300} {
 		for _, rth := range []float64{1, 5, 20} {
-			run(fmt.Sprintf("lag %g, %g K/W", lag, rth), func() warmDevice { return warmDevice{kappa: 4e-3, alpha: 1.7, rth: rth, lag: lag} })
+			o := run(fmt.Sprintf("lag %g, %g K/W", lag, rth), func() warmDevice { return warmDevice{kappa: 4e-3, alpha: 1.7, rth: rth, lag: lag} })
+			if o.history > 0 {
+				t.Errorf("lag %g, %g K/W: %d of %d called gate history", lag, rth, o.history, o.n)
+			}
+			// A lag of some points and a rise of tens of kelvins: seen, and mostly told.
+			if lag >= 3 && lag <= 30 && rth >= 5 {
+				heating, n = heating+o.heating, n+o.n
+				if o.none > o.n/4 {
+					t.Errorf("lag %g, %g K/W: %d of %d not seen", lag, rth, o.none, o.n)
+				}
+			}
+			if lag < 1 && rth < 20 && o.none < o.n {
+				t.Errorf("lag %g, %g K/W: seen in %d of %d although nothing can be", lag, rth, o.n-o.none, o.n)
+			}
 		}
 	}
+	t.Logf("told to be heating: %d of %d with a lag of 3 to 30 points", heating, n)
+	if 4*heating < n {
+		t.Errorf("told to be heating: %d of %d only", heating, n)
+	}
 	for _, v := range []float64{-20e-3, -5e-3, 5e-3, 20e-3} {
-		run(fmt.Sprintf("hysteresis %g mV", 1e3*v), func() warmDevice { return warmDevice{lag: 1, memory: v} })
+		o := run(fmt.Sprintf("hysteresis %g mV", 1e3*v), func() warmDevice { return warmDevice{lag: 1, memory: v} })
+		// Where the down sweep needs less gate voltage a warm part looks much alike.
+		least := o.n * 9 / 10
+		if v < 0 {
+			least = o.n / 3
+		}
+		if o.heating > 0 || o.history < least || o.none > o.n/5 {
+			t.Errorf("hysteresis %g mV: %+v", 1e3*v, o)
+		}
 	}
 	for _, v := range []float64{-20e-3, 20e-3} {
-		run(fmt.Sprintf("creep %g mV", 1e3*v), func() warmDevice { return warmDevice{lag: 1, creep: v} })
+		if o := run(fmt.Sprintf("creep %g mV", 1e3*v), func() warmDevice { return warmDevice{lag: 1, creep: v} }); o.heating > 0 || o.none > 0 {
+			t.Errorf("creep %g mV: %+v", 1e3*v, o)
+		}
 	}
-	run("nothing", func() warmDevice { return warmDevice{lag: 1} })
+	if o := run("nothing", func() warmDevice { return warmDevice{lag: 1} }); o.none < o.n {
+		t.Errorf("nothing: %+v", o)
+	}
 }

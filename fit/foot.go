@@ -50,12 +50,14 @@ func (w *work) raiseToFoot() {
 	for j := range w.pts {
 		p := &w.pts[j]
 		p.u = math.Max(p.u, noise)
-		switch {
-		case !w.byDrain || !p.load || p.nl > 0:
-		case short > 0:
+		if !w.byDrain || !p.load {
+			continue
+		}
+		if p.nl > 0 || short > 0 {
 			p.u = math.Max(p.u, short)
-		default:
+		} else {
 			p.u = math.Max(p.u, p.wl)
 		}
+		p.q = math.Max(p.q, math.Sqrt(12)*p.u) // a count that hides in noise is none
 	}
 }

@@ -7,7 +7,7 @@ import (
 
 // spread lays residuals of a function of the gate voltage at even steps around 0.
 func residualsOf(f func(x float64) float64, step, s float64) *spreading {
-	p := &spreading{n: 2 * krigeSide}
+	p := &spreading{n: 2 * krigeSide, usual: krigeUsual}
 	for k := range p.n {
 		p.x[k] = (float64(k) - krigeSide + 0.5) * step
 		p.r[k], p.s[k] = f(p.x[k]), s

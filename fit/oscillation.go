@@ -146,10 +146,6 @@ func (w *work) slopeAround(j, e int) float64 {
 	return 1 / thermalVoltage
 }
 
-// leftover reports whether the reading of p bears the signs of a leftover of the
-// meter: the same as one of the two before, to the last digit.
-func (w *work) leftover(p *point) bool { return w.costOf(p) <= costOfLeftover }
-
 // stoodStill reports whether the points j…e-1 of one gate voltage were taken while
 // the gate moved and its reading did not: their currents follow one another in time
 // as they do in size, and continue the curve on both sides.

@@ -211,10 +211,16 @@ func (w *work) nameFault(p *point) (code, text string) {
 			return CodeDecadeSpike, "the gate voltage reads " + volts(w.gate*p.vg) + ", " + said
 		}
 	}
-	if w.rangeChange(p) {
-		return CodeRangeGlitch, "the current reads " + amps(p.i) + " where the meter changed its range"
+	reads := "the current reads " + amps(p.i)
+	switch repeats, change := w.signOf(p) == repetition, w.rangeChange(p); {
+	case repeats && change:
+		return CodeRangeGlitch, reads + ", as before, where the meter changed its range"
+	case repeats:
+		return CodeStuckReading, reads + ", as before, although the gate moved"
+	case change:
+		return CodeRangeGlitch, reads + " where the meter changed its range"
 	}
-	return CodeOutOfLine, "the current reads " + amps(p.i) + ", which contradicts the points around it"
+	return CodeOutOfLine, reads + ", which contradicts the points around it"
 }
 
 // fits reports whether p at gate voltage vg with current i would lie between

@@ -224,7 +224,11 @@ func checkSane(t interface {
 			t.Fatalf("cleaned points out of order: %v", cl.Vg)
 		}
 	}
-	Combine([]Result{r, r}, []string{"up", "down"})
+	both := Combine([]Result{r, r}, []string{"up", "down"})
+	Drift([]Swept{{c, s, "up", r}, {c, s, "down", r}}, &both)
+	if both.Has(CodeHeating) || both.Has(CodeGateHistory) {
+		t.Fatalf("one curve differs from itself: %v", both.Warnings)
+	}
 }
 
 func TestNothingPanics(t *testing.T) {

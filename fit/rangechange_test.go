@@ -154,42 +154,44 @@ func (g glitchCase) draw(r *rand.Rand, m simMeters, share float64) (bad, oracle 
 	return bad, oracle, d, spoiled
 }
 
+// Four fifths of all range changes spoiled, one or two readings each, on one meter
+// or on both (self-made): V_GS(th) within 10 mV of the truth wherever the sound
+// readings tell it to that. What they tell is what the same curve gives with the
+// spoiled readings taken out by hand; at steps of 100 mV that leaves gaps of 300 mV in
+// the knee, across which no interpolation sees.
 func TestGlitchedRangeChanges(t *testing.T) {
-	r := randomSource(501)
-	for _, meters := range []string{"6000", "20000"} {
-		m := map[string]simMeters{"6000": handheld(), "20000": fineMeters()}[meters]
-		var total, totalFar, totalOracle, totalNone, oracleNone, wrongly, missed, spoiledAll int
+	type tally struct{ n, none, far, unsaid, byHand, oscillation int }
+	by := map[float64]*tally{0.01: {}, 0.05: {}, 0.1: {}}
+	spoiledAll, kept, sound := 0, 0, 0
+	for name, m := range map[string]simMeters{"6000": handheld(), "20000": fineMeters()} {
+		r := randomSource(501)
 		for _, g := range glitchCases() {
-			n, far, farOracle, none, noneOracle := 0, 0, 0, 0, 0
-			worst, worstOracle := 0.0, 0.0
-			states := map[State]int{}
-			for range 60 {
-				bad, oracle, d, spoiled := g.draw(r, m, 0.8)
+			var c tally
+			worst := 0.0
+			for range 20 {
+				bad, byHand, d, spoiled := g.draw(r, m, 0.8)
 				s := g.bench.setup()
 				s.TestCurrent = g.current
 				want := d.gateFor(g.bench, g.current)
-				if g.bench.circuit == Fixed && g.bench.vds < 1 && d.at(g.bench, bad.Vg[0])+d.at(g.bench, bad.Vg[len(bad.Vg)-1]) < g.current {
-					continue
+				if d.at(g.bench, slices.Max(bad.Vg)) < 1.1*g.current {
+					continue // does not get there
 				}
-				q, o := One(bad, s), One(oracle, s)
-				n++
-				e, eo := math.Abs(q.Vgsth.Value-want), math.Abs(o.Vgsth.Value-want)
+				q, o := One(bad, s), One(byHand, s)
+				c.n++
 				if !q.Vgsth.Ok() {
-					none++
-					states[q.State]++
-				} else if e > 10e-3 {
-					far++
-				}
-				if !o.Vgsth.Ok() {
-					noneOracle++
-				} else if eo > 10e-3 {
-					farOracle++
-				}
-				if q.Vgsth.Ok() {
+					c.none++
+				} else if e := math.Abs(q.Vgsth.Value - want); e > 10e-3 {
+					c.far++
 					worst = math.Max(worst, e)
+					if e > 3*q.Vgsth.U && !q.Has(CodeCoarseNearCurrent) {
+						c.unsaid++
+					}
 				}
-				if o.Vgsth.Ok() {
-					worstOracle = math.Max(worstOracle, eo)
+				if math.Abs(o.Vgsth.Value-want) > 10e-3 {
+					c.byHand++
+				}
+				if q.Has(CodeOscillation) {
+					c.oscillation++
 				}
 				is := map[int]bool{}
 				for _, k := range spoiled {
@@ -198,20 +200,32 @@ func TestGlitchedRangeChanges(t *testing.T) {
 				spoiledAll += len(spoiled)
 				for _, l := range q.LeftOut {
 					if !is[l.Index] {
-						wrongly++
-					} else {
-						delete(is, l.Index)
+						sound++
 					}
+					delete(is, l.Index)
 				}
-				missed += len(is)
+				kept += len(is)
 			}
-			t.Logf("%s %s: %d: none %d (%d) beyond 10 mV %d (%d), worst %.1f (%.1f) mV %v", meters, g, n, none, noneOracle, far, farOracle, 1e3*worst, 1e3*worstOracle, states)
-			total += n
-			totalFar += far
-			totalNone += none
-			totalOracle += farOracle
-			oracleNone += noneOracle
+			if c.far > c.byHand {
+				t.Logf("%s %s: %+v, worst %.1f mV", name, g, c, 1e3*worst)
+			}
+			a := by[g.step]
+			a.n, a.none, a.far, a.unsaid, a.byHand, a.oscillation = a.n+c.n, a.none+c.none, a.far+c.far, a.unsaid+c.unsaid, a.byHand+c.byHand, a.oscillation+c.oscillation
 		}
-		t.Logf("%s: %d curves: none %d (%d) beyond 10 mV %d (%d); %d points spoiled, %d kept, %d sound ones left out", meters, total, totalNone, oracleNone, totalFar, totalOracle, spoiledAll, missed, wrongly)
+	}
+	for _, step := range []float64{0.01, 0.05, 0.1} {
+		c := by[step]
+		t.Logf("%3.0f mV: %d curves, no value %d, beyond 10 mV %d (of these without a word and beyond 3u %d; with the spoiled readings out %d), called oscillation %d",
+			1e3*step, c.n, c.none, c.far, c.unsaid, c.byHand, c.oscillation)
+		if c.none*200 > c.n || c.oscillation*50 > c.n || c.unsaid*100 > c.n {
+			t.Errorf("%g V: %+v", step, *c)
+		}
+	}
+	t.Logf("%d readings spoiled, %d kept (most hardly moved), %d sound points left out", spoiledAll, kept, sound)
+	if by[0.01].far > 0 || by[0.05].far*100 > by[0.05].n || by[0.1].far*10 > 11*by[0.1].byHand {
+		t.Error("too far off")
+	}
+	if sound*50 > spoiledAll {
+		t.Errorf("%d sound points left out for %d spoiled", sound, spoiledAll)
 	}
 }

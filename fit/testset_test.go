@@ -405,14 +405,17 @@ func (r *cellResult) take(d *denseCurve, q Quantity, mode testMode) {
 	r.by[d.device] = append(r.by[d.device], e)
 }
 
-// TestTestSet prints the table of the test set and which cells miss which bar:
-// sweeps read without statements; load circuits with an ammeter as well; and
-// with gains and statements, judged by the absolute uncertainty. With
+// manyDraws is how many draws a cell is judged by.
+const manyDraws = 200
+
+// TestTestSet prints the table of the test set and holds every cell to its bars
+// (checkTestSet): sweeps read without statements; load circuits with an ammeter as
+// well; and with gains and statements, judged by the absolute uncertainty. With
 // GATESILL_LONG=1 many draws a cell, else few, which tell gross errors only.
 func TestTestSet(t *testing.T) {
 	draws := 20
 	if os.Getenv("GATESILL_LONG") != "" {
-		draws = 200
+		draws = manyDraws
 	} else if testing.Short() {
 		t.Skip("the test set")
 	}
@@ -423,6 +426,7 @@ func TestTestSet(t *testing.T) {
 			if len(results) < 40 {
 				t.Errorf("%d cells only", len(results))
 			}
+			checkTestSet(t, results, mode, draws == manyDraws)
 			for _, r := range results {
 				if r.dealt != draws {
 					t.Errorf("%s: %d draws", r.testCell, r.dealt)

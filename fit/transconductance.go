@@ -329,6 +329,10 @@ func (w *work) transconductances(r *Result, idle crossing) {
 	if math.IsNaN(idle.v) {
 		return
 	}
+	if idle.gm > 0 && idle.ugm > 0 {
+		r.GmIdle = w.gainQuantity(idle.gm, idle.ugm, idle.n, math.Inf(1), w.s.IdleCurrent, w.slopeFollows())
+		return
+	}
 	j := 0
 	for j < n-1 && math.Abs(s.x[j+1]-idle.v) <= math.Abs(s.x[j]-idle.v) {
 		j++

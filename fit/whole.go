@@ -60,6 +60,10 @@ const (
 // wholeOptions stop a fit when a further step would not matter (parSteps).
 var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
 
+// shapeOptions do for telling the shapes of the knee apart: every parameter within a
+// hundredth of its standard error of the best.
+var shapeOptions = lsq.Options{MaxEvals: 60, Cosine: 2e-3, JacobianWithTrial: true}
+
 // whole is the model laid through the curve, nil where there is none to be had.
 func (w *work) whole() *whole {
 	if !w.laid {
@@ -117,7 +121,7 @@ func (w *work) layWhole() (*whole, bool) {
 	t.noise = usualNoise
 	t.apart = make([]bool, len(t.vg))
 	t.begin = t.p
-	if !t.chooseFoot(w) || !t.refit(w) {
+	if !t.chooseFoot(w) || !t.refit(w, wholeOptions) {
 		return nil, false
 	}
 	// What flows with the channel off flows beside it when it is on.
@@ -125,7 +129,7 @@ func (w *work) layWhole() (*whole, bool) {
 		for j := range t.i {
 			t.i[j] -= leak
 		}
-		if !t.chooseFoot(w) || !t.refit(w) {
+		if !t.chooseFoot(w) || !t.refit(w, wholeOptions) {
 			return nil, false
 		}
 	}
@@ -136,7 +140,7 @@ func (w *work) layWhole() (*whole, bool) {
 		}
 		t.apart[k] = true
 		// A point far off may have chosen the shape of the knee.
-		if !t.chooseFoot(w) || !t.refit(w) {
+		if !t.chooseFoot(w) || !t.refit(w, wholeOptions) {
 			return nil, false
 		}
 	}
@@ -156,7 +160,7 @@ func (t *whole) chooseFoot(w *work) bool {
 			t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
 		}
 		ssr[k] = math.Inf(1)
-		if !t.refit(w) {
+		if !t.refit(w, shapeOptions) {
 			continue
 		}
 		ssr[k], vt[k] = t.got.SSR, t.p[parVt]
@@ -182,9 +186,9 @@ const plainlyBetter = 0.5
 const hardlyWorse = 5
 
 // refit weighs the points anew and fits.
-func (t *whole) refit(w *work) bool {
+func (t *whole) refit(w *work, o lsq.Options) bool {
 	t.weigh(w)
-	t.got = t.fit(wholeOptions)
+	t.got = t.fit(o)
 	if r := t.got.Reason; !r.Converged() && r != lsq.TooManyEvaluations && r != lsq.Stuck {
 		return false
 	}

@@ -277,6 +277,10 @@ func (w *work) leaveUnread(k int, x float64) {
 // display: "0.2" alone is not a reading of one digit.
 const fewestForDigits = 8
 
+// roomCounts is the least standard deviation of a reading, in counts, that is
+// allowed for where faults are judged: cheap meters flicker by that (judgement).
+const roomCounts = 2
+
 // counts finds the step of each display at every point: as stated for the
 // range, or as its digits show where they are coarser. A gate grid may be set
 // rather than read, so its digits count only where nothing is stated.
@@ -302,13 +306,13 @@ func (w *work) counts() {
 	if w.ammeter {
 		each(fewestForDigits, func(p *point) float64 { return at(w.c.Id, p.k) }, func(p *point, q, last float64) {
 			p.qa = max(q, rangeFor(w.s.Current, p.a).Resolution)
-			p.wa = max(p.qa, random(last, p.na))
+			p.wa = max(roomCounts*p.qa, random(last, p.na))
 		})
 	}
 	if w.byLoad {
 		each(fewestForDigits, func(p *point) float64 { return at(w.c.Vl, p.k) }, func(p *point, q, last float64) {
 			p.ql = max(q, rangeFor(w.s.Load, p.l*rl).Resolution) / rl
-			p.wl = max(p.ql, random(last/rl, p.nl))
+			p.wl = max(roomCounts*p.ql, random(last/rl, p.nl))
 		})
 	}
 	if w.byDrain {
@@ -316,7 +320,7 @@ func (w *work) counts() {
 			v := w.drainAt(p.k)
 			p.ql = max(q, rangeFor(w.s.Drain, v).Resolution) / rl
 			// A difference of two large voltages: their noise is what counts.
-			p.wl = rss(max(p.ql, random(last/rl, p.nl)), typicalNoise*v/rl)
+			p.wl = rss(max(roomCounts*p.ql, random(last/rl, p.nl)), typicalNoise*v/rl)
 		})
 	}
 	each(1, func(p *point) float64 { return p.vg }, func(p *point, q, _ float64) {

@@ -9,7 +9,7 @@ import (
 
 // codesOfDoubt are the warnings by which the sweeps of one device contradict
 // one another, or a sweep itself.
-var codesOfDoubt = []string{fit.CodeSweepsDisagree, fit.CodeHeating, fit.CodeOscillation}
+var codesOfDoubt = []string{fit.CodeSweepsDisagree, fit.CodeHeating, fit.CodeGateHistory, fit.CodeOscillation}
 
 // Doubt is a device whose sweeps disagree.
 type Doubt struct {

@@ -53,6 +53,7 @@ func TestScripts(t *testing.T) {
 		Setup: func(env *testscript.Env) error {
 			env.Setenv("SCENARIOS", filepath.Join(root, "testdata", "scenarios"))
 			env.Setenv("SPICE", filepath.Join(root, "testdata", "spice"))
+			env.Setenv("FAULTS", filepath.Join(root, "testdata", "faults"))
 			env.Setenv("GATESILL_STORE", filepath.Join(env.WorkDir, "store.db"))
 			env.Setenv("HOME", env.WorkDir)
 			return nil

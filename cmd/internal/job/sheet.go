@@ -165,6 +165,7 @@ func fitSheet(ctx context.Context, s *report.Sheet, method string, digits lastDi
 func fitDevice(s *report.Sheet, d *report.Device, method string, digits lastDigits) {
 	var rs []fit.Result
 	var dirs []string
+	var swept []fit.Swept
 	seen := map[string]bool{}
 	for i := range d.Sweeps {
 		sw := &d.Sweeps[i]
@@ -185,8 +186,10 @@ func fitDevice(s *report.Sheet, d *report.Device, method string, digits lastDigi
 		sw.Result.Choose(method)
 		rs = append(rs, sw.Result)
 		dirs = append(dirs, string(sw.Direction))
+		swept = append(swept, fit.Swept{Curve: sw.Curve, Setup: setup, Direction: string(sw.Direction), Result: sw.Result})
 	}
 	d.Result = fit.Combine(rs, dirs)
+	fit.Drift(swept, &d.Result)
 	if len(rs) == 0 {
 		d.Result.State, d.Result.Why = fit.Declined, "no sweep of it is stored"
 	}
