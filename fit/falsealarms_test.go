@@ -263,8 +263,8 @@ func (a *alarmRates) String() string {
 // Sound sweeps raise no alarm: each code on less than one in two hundred.
 func TestFalseAlarms(t *testing.T) {
 	var own, spice alarmRates
-	soundSelfMade(101, 2000, func(p soundPair) { own.take(t, p) })
-	soundSpice(t, 102, 1000, func(p soundPair) { spice.take(t, p) })
+	soundSelfMade(101, 1500, func(p soundPair) { own.take(t, p) })
+	soundSpice(t, 102, 800, func(p soundPair) { spice.take(t, p) })
 	t.Logf("self-made: %s", &own)
 	t.Logf("simulator: %s", &spice)
 	for _, a := range []*alarmRates{&own, &spice} {
