@@ -111,7 +111,7 @@ func TestQuantityAsJSON(t *testing.T) {
 		want string
 	}{
 		{None(), `{"value":null,"u":null,"u_between":null,"u_absolute":null,"n":0}`},
-		{Quantity{3.5, 0.001, math.NaN(), math.Inf(1), 4}, `{"value":3.5,"u":0.001,"u_between":null,"u_absolute":null,"n":4}`},
+		{Quantity{Value: 3.5, U: 0.001, UBetween: math.NaN(), UAbsolute: math.Inf(1), N: 4}, `{"value":3.5,"u":0.001,"u_between":null,"u_absolute":null,"n":4}`},
 		{Quantity{N: 1}, `{"value":0,"u":0,"u_between":0,"u_absolute":0,"n":1}`},
 	} {
 		b, err := c.q.MarshalJSON()

@@ -21,41 +21,29 @@ type channel struct {
 	a, inverse    float64 // 2 n kT/q and its inverse, V and 1/V
 	theta, lambda float64 // 1/V
 	foot          Foot
+	knee          *kneeSeries // of the smooth and the sharp foot
 }
 
 func channelOf(p *[parCount]float64, foot Foot) channel {
 	a := 2 * math.Exp(p[parN]) * thermalVoltage
-	return channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], foot: foot}
+	c := channel{vt: p[parVt], half: math.Exp(p[parBeta]) / 2, a: a, inverse: 1 / a, theta: p[parTheta], lambda: p[parLambda], foot: foot}
+	switch foot {
+	case SmoothFoot:
+		c.knee = smoothKnee()
+	case SharpFoot:
+		c.knee = sharpKnee()
+	}
+	return c
 }
-
-// far is the argument of the knee, in units of a, beyond which it is straight (or
-// nothing) to the last bit.
-const far = 37
 
 // pinched is how far below the knee, and how much V_DS, in units of a, it takes for
 // the square of the drain end to be nothing beside that of the source end to the last
 // bit.
 const pinched = 19
 
-// smooth is the smooth knee a ln(1 + exp(x/a)), its slope, and its derivative by a.
-func (c *channel) smooth(x float64) (s, g, da float64) {
-	m := math.Abs(x) * c.inverse
-	if m > far {
-		if x > 0 {
-			return x, 1, 0
-		}
-		return 0, 0, 0
-	}
-	f, d := softplus(m)
-	s, g, da = c.a*f, d, f+m*d
-	if x > 0 {
-		s, g = s+x, 1-g
-	}
-	return s, g, da
-}
-
-// sharp is the knee a asinh(exp(x/a)/2), its slope, and its derivative by a.
-func (c *channel) sharp(x float64) (s, g, da float64) {
+// rounded is the smooth or the sharp knee, a y(x/a), its slope, and its derivative by
+// a.
+func (c *channel) rounded(x float64) (s, g, da float64) {
 	z := x * c.inverse
 	switch {
 	case z > far:
@@ -63,13 +51,8 @@ func (c *channel) sharp(x float64) (s, g, da float64) {
 	case z < -far:
 		return 0, 0, 0
 	}
-	e := math.Exp(z) / 2
-	root := math.Sqrt(1 + e*e)
-	s, g = c.a*math.Log(e+root), e/root
-	if e < 1e-3 {
-		s = c.a * e * (1 - e*e/6)
-	}
-	return s, g, (s - x*g) * c.inverse
+	y, g := c.knee.at(z)
+	return c.a * y, g, y - z*g
 }
 
 // kinked is the knee that is exponential, (a/2) exp(x/a - 1/2), up to x = a/2 and
@@ -98,13 +81,10 @@ type ends struct {
 // source evaluates the source end at V_GS.
 func (c *channel) source(e *ends, vgs float64) {
 	e.x = vgs - c.vt
-	switch c.foot {
-	case SmoothFoot:
-		e.s, e.sx, e.sa = c.smooth(e.x)
-	case SharpFoot:
-		e.s, e.sx, e.sa = c.sharp(e.x)
-	default:
+	if c.foot == KinkedFoot {
 		e.s, e.sx, e.sa = c.kinked(e.x)
+	} else {
+		e.s, e.sx, e.sa = c.rounded(e.x)
 	}
 	e.share = 1 / (1 + c.theta*e.s)
 }
@@ -123,10 +103,8 @@ func (c *channel) drain(e *ends, vds float64) {
 		return
 	case vds > pinched*c.a && x < -pinched*c.a:
 		e.d, e.dx, e.da = 0, 0, 0
-	case c.foot == SmoothFoot:
-		e.d, e.dx, e.da = c.smooth(x)
 	default:
-		e.d, e.dx, e.da = c.sharp(x)
+		e.d, e.dx, e.da = c.rounded(x)
 	}
 	e.dv = e.dx
 }

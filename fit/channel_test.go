@@ -81,18 +81,22 @@ func TestChannelSolve(t *testing.T) {
 	}
 }
 
-// The knee against exponential and logarithm of the standard library, to a few
-// roundings; its slope is a series cut short one term earlier.
-func TestSoftplus(t *testing.T) {
-	for k := range 100_001 {
-		m := far * float64(k) / 100_000
-		f, d := softplus(m)
-		e := math.Exp(-m)
-		if want := math.Log1p(e); math.Abs(f-want) > 2e-15*want {
-			t.Fatalf("ln(1+exp(%g)): %.17g, want %.17g", -m, f, want)
+// The knees against the functions of the standard library.
+func TestKnees(t *testing.T) {
+	check := func(name string, z, got, want, tol float64) {
+		t.Helper()
+		if !(math.Abs(got-want) <= tol*want) {
+			t.Fatalf("%s at %g: %.17g, want %.17g, off by %.1e", name, z, got, want, got/want-1)
 		}
-		if want := e / (1 + e); math.Abs(d-want) > 2e-14*want {
-			t.Fatalf("slope of ln(1+exp(%g)): %.17g, want %.17g", -m, d, want)
-		}
+	}
+	for j := range 200_001 {
+		z := far * (float64(j)/100_000 - 1)
+		e := math.Exp(z)
+		y, s := smoothKnee().at(z)
+		check("ln(1+exp(z))", z, y, math.Log1p(e), 5e-15)
+		check("its slope", z, s, 1/(1+math.Exp(-z)), 2e-12)
+		y, s = sharpKnee().at(z)
+		check("asinh(exp(z)/2)", z, y, math.Asinh(e/2), 5e-15)
+		check("its slope", z, s, e/math.Sqrt(4+e*e), 2e-12)
 	}
 }

@@ -47,6 +47,10 @@ const (
 	CodeFallingCurve       = "falling-curve"   // less current with more gate drive
 	CodeNoCircuit          = "no-circuit"      // circuit not given
 	CodeNoAccuracy         = "no-accuracy"     // no accuracy statement: no absolute uncertainty
+	CodeRangeEdge          = "range-edge"      // the readings compared lie on two ranges
+	CodeNotAsked           = "not-asked"       // no value because nobody asked for it
+	CodeNotByMethod        = "not-by-method"   // the method behind the threshold has no such number
+	CodeOffNotRead         = "off-not-read"    // no reading at the off voltage
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
 	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
@@ -182,6 +186,18 @@ var Codes = []CodeInfo{
 	{CodeNoAccuracy,
 		"An accuracy statement is missing, so the absolute uncertainty is not known.",
 		"Give the bench file with the meters' accuracy and the tolerance of the load resistor."},
+	{CodeRangeEdge,
+		"Near the current compared some devices were read on one range of a meter and others on the next: its errors are not common to them and do not cancel.",
+		"Hold the meter on the range that takes all of them, and measure those on the other range again."},
+	{CodeNotAsked,
+		"A number is missing because what it is taken at was not given.",
+		"Give the current or the method if the number is wanted."},
+	{CodeNotByMethod,
+		"The method behind the extrapolated threshold gives no such number.",
+		"Choose a method that gives it, with gatesill fit LOT --method curve or ratio."},
+	{CodeOffNotRead,
+		"The sweep has no reading near the off voltage, or none that shows a leakage, so nothing is known of it.",
+		"Begin the sweep at the off voltage if drain leakage matters."},
 	{CodeOverdue,
 		"A meter's calibration is overdue.",
 		"Have the meter calibrated, or compare it with one that is."},

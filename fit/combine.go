@@ -224,8 +224,7 @@ func overStretches(qs []Quantity, mine Quantity) Quantity {
 		return meanOf(qs, mine)
 	}
 	if d/2 > mine.U {
-		mine.UAbsolute = math.Sqrt(mine.UAbsolute*mine.UAbsolute - mine.U*mine.U + d*d/4)
-		mine.U = d / 2
+		mine = widened(mine, d/2)
 	}
 	return mine
 }
@@ -269,7 +268,7 @@ func meanOf(qs []Quantity, mine Quantity) Quantity {
 		}
 		return 1 / (q.U * q.U)
 	}
-	var sum, weights, own, common float64
+	var sum, weights, own, between, common float64
 	n := 0
 	for _, q := range qs {
 		wt := weight(q)
@@ -277,6 +276,7 @@ func meanOf(qs []Quantity, mine Quantity) Quantity {
 		weights += wt
 		own += wt * wt * math.Max(0, q.U*q.U-step*step)
 		n += q.N
+		between += wt * (q.UBetween*q.UBetween - q.U*q.U)
 		common += wt * (q.UAbsolute*q.UAbsolute - q.U*q.U)
 	}
 	m := sum / weights
@@ -288,7 +288,9 @@ func meanOf(qs []Quantity, mine Quantity) Quantity {
 	scatter /= weights * float64(len(qs)-1)
 	if known {
 		out.U = math.Sqrt(math.Max(own/(weights*weights)+step*step, scatter))
+		out.UBetween = math.Sqrt(out.U*out.U + math.Max(0, between/weights))
 		out.UAbsolute = math.Sqrt(out.U*out.U + math.Max(0, common/weights))
+		out.Budget = joinBudgets(qs, weight, weights, out.U)
 	} else if scatter > 0 {
 		out.U = math.Sqrt(scatter)
 	} else {

@@ -35,7 +35,9 @@ const (
 type crossing struct {
 	v       float64 // V, n-channel sign; NaN: none
 	u       float64 // V, random part, interpolation included
+	random  float64 // V, the part of u that is scatter of the readings; 0: not told apart
 	gm      float64 // S, slope of the curve there
+	ugm     float64 // S, its random uncertainty where the reading was made along the model, else NaN
 	n       int     // points it rests on
 	count   int     // upward crossings
 	lo, hi  float64 // V, first and last upward crossing
@@ -47,25 +49,25 @@ type crossing struct {
 }
 
 func noCrossing() crossing {
-	return crossing{v: math.NaN(), u: math.NaN(), gm: math.NaN(), lo: math.NaN(), hi: math.NaN(), b: -1}
+	return crossing{v: math.NaN(), u: math.NaN(), gm: math.NaN(), ugm: math.NaN(), lo: math.NaN(), hi: math.NaN(), b: -1}
 }
 
 // gateAt finds the gate voltage at which the curve carries iref: V_GS(th) by
 // constant current, or the gate bias.
 //
-// First upward crossing in the order of gate voltage. Between the two points
-// around it a local polynomial in √I or ln I is solved for iref, in whichever
-// of the two the curve is straighter. The window grows from two points on
-// either side as long as the estimates agree within their scatter, so that
-// exact points are interpolated and coarse or noisy ones averaged. With a gap
-// on either side, or currents below three counts, the value is the middle of
-// the bounds that a transfer curve must keep (see bounds), or linear in √I.
+// First upward crossing in the order of gate voltage. Between points more than
+// 10.5 mV apart it is read along the device's own curve (see readAlong). Between
+// nearer ones, or where the model describes nothing, a local polynomial in √I or ln I
+// is solved for iref, in whichever of the two the curve is straighter. The window
+// grows from two points on either side as long as the estimates agree within their
+// scatter, so that exact points are interpolated and noisy ones averaged. With a gap
+// on either side, or currents below three counts, the value is the middle of the
+// bounds that a transfer curve must keep (see bounds), or linear in √I.
 //
-// Uses points with at least three counts. u is the scatter of the points taken
-// through the linear map of the polynomial, and, for interpolating, half the
-// difference between the two ordinates and a share of that between polynomials
-// leaning to either side; sigma is taken from the data and not below what is
-// stated for the meters.
+// Uses points with at least three counts. u of a polynomial is the scatter of the
+// points taken through its linear map, and, for interpolating, half the difference
+// between the two ordinates and a share of that between polynomials leaning to either
+// side; sigma is taken from the data and not below what is stated for the meters.
 //
 // Source: data-sheet convention for V_GS(th) (drain current stated, V_DS = V_GS
 // or fixed); review: A. Ortiz-Conde et al., Microelectronics Reliability 42
@@ -119,13 +121,7 @@ func (w *work) gateAt(iref float64) crossing {
 	if c.count > 1 && c.hi-c.lo < 6*e {
 		c.b = (c.b + last + 1) / 2 // noise, not hysteresis: between them
 	}
-	if along := c; w.readAlong(&along, iref) {
-		// Where the load resistor takes over the plain rules may know better.
-		if w.along.squeezed && w.interpolate(&c, iref, e) && c.u < along.u {
-			along = c
-		}
-		c = along
-	} else if !w.interpolate(&c, iref, e) {
+	if !w.readAlong(&c, iref) && !w.interpolate(&c, iref, e) {
 		w.bounds(&c, iref, e)
 	}
 	w.judgeGrid(&c, iref)
@@ -172,7 +168,7 @@ func (w *work) interpolate(c *crossing, iref, e float64) bool {
 		other = w.grow(o2, b, lo, hi, best.n/2, iref, e)
 	}
 	c.v, c.gm, c.n = best.v, best.gm, best.n
-	c.u = best.u
+	c.u, c.random = best.u, best.u
 	if other.ok() {
 		// Where one of the two is straight the other tells nothing.
 		c.u = rss(best.u, math.Min(math.Abs(best.v-other.v)/2, best.bend))
@@ -194,7 +190,7 @@ func (w *work) beforeCorner(c *crossing, iref, e float64) {
 	c.v, c.n = early+cornerShare*(late-early), 3
 	c.gm = 2 * y * (rise + chord) / 2
 	single := rss(rss(e, a.ux), a.u/c.gm)
-	c.u = rss(boundShare*(late-early), single)
+	c.u, c.random = rss(boundShare*(late-early), single), single
 }
 
 // estimate is one reading of the crossing by a local polynomial.
@@ -381,7 +377,7 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 	c.n = 2
 	c.gm = 2 * math.Sqrt(iref) * (math.Sqrt(b.i) - math.Sqrt(math.Max(a.i, 0))) / (b.vg - a.vg)
 	single := rss(rss(e, b.ux), b.u/c.gm)
-	c.u = rss(boundShare*(hi-lo), single)
+	c.u, c.random = rss(boundShare*(hi-lo), single), single
 }
 
 // atFirst reads the first point itself, which carries the current within a
@@ -389,6 +385,7 @@ func (w *work) bounds(c *crossing, iref, e float64) {
 func (w *work) atFirst(c *crossing, iref, e float64) {
 	p := &w.pts[0]
 	c.v, c.n, c.u = p.vg, 1, rss(e, p.ux)
+	c.random = c.u
 	if len(w.pts) < 2 {
 		return
 	}
@@ -400,6 +397,7 @@ func (w *work) atFirst(c *crossing, iref, e float64) {
 	c.gm = 2 * math.Sqrt(iref) * s
 	c.v += (math.Sqrt(iref) - math.Sqrt(p.i)) / s
 	c.u = rss(c.u, p.u/c.gm)
+	c.random = c.u
 }
 
 // belowCounts reads a current of less than three counts: single readings there
@@ -433,6 +431,7 @@ func (w *work) belowCounts(c *crossing, iref float64) {
 		return
 	}
 	c.v, c.gm, c.n = v, slope, m
+	c.random = w.poly.scatter(v, s[:m], false) / slope
 	// An exponential foot is no parabola: a quarter of the step is doubtful, and
 	// a count is worth at least what it is on an exponential of n = 1.4.
 	c.u = rss(w.poly.scatter(v, s[:m], false)/slope, (b-a)/4)

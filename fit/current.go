@@ -192,18 +192,8 @@ func (w *work) loadIsFiner(i float64) bool {
 // relative is the relative standard uncertainty of a current i against the SI
 // unit, by load resistor or by ammeter; NaN when there is no statement.
 func (w *work) relative(i float64, onLoad bool) float64 {
-	if !onLoad {
-		return rangeFor(w.s.Current, i).absolute(i) / math.Abs(i)
-	}
-	ranges := w.s.Load
-	v := i * w.s.RL
-	if w.byDrain {
-		// The difference of two readings of one meter: both near V_DD.
-		ranges = w.s.Drain
-		u := rangeFor(ranges, w.vdd).absolute(w.vdd)
-		return rss(math.Sqrt2*u/math.Abs(v), w.s.RLTol/math.Sqrt(3))
-	}
-	return rss(rangeFor(ranges, v).absolute(v)/math.Abs(v), w.s.RLTol/math.Sqrt(3))
+	s := w.scaleAt(i, onLoad)
+	return rss(rss(s.gain, s.offset/math.Abs(i)), s.resistor)
 }
 
 // both gives the two currents of a point on the scale that is kept.

@@ -61,6 +61,7 @@ type Setup struct {
 
 	Gate, Current, Load, Drain []Accuracy // by range, ascending by Top; nil: nothing known
 
-	Spot        bool // a curve of one or two points from a one-resistor jig
-	Temperature float64
+	Spot        bool    // a curve of one or two points from a one-resistor jig
+	Temperature float64 // deg C, of the part; NaN: not recorded
+	Budget      bool    // keep the contributions to every uncertainty: [Quantity.Budget]
 }

@@ -12,6 +12,7 @@ import (
 type denseCurve struct {
 	file, family, circuit, device string
 	setup                         Setup
+	vto, rs                       float64             // of the card, V and ohm
 	even                          bool                // at even steps, else at those that a line between them needs
 	v, i                          []float64           // V ascending, A
 	truth                         map[float64]float64 // A -> V with the device's own sign; absent: never reached
@@ -43,7 +44,7 @@ func denseCurves(t *testing.T) []*denseCurve {
 }
 
 func (o *outsideCurve) dense() *denseCurve {
-	d := &denseCurve{file: o.file, family: o.family, device: o.device, setup: o.setup, even: o.step == "dense", truth: map[float64]float64{}}
+	d := &denseCurve{file: o.file, family: o.family, device: o.device, setup: o.setup, vto: o.vto, rs: o.rs, even: o.step == "dense", truth: map[float64]float64{}}
 	d.circuit = o.circuit
 	switch d.setup.Circuit {
 	case Fixed:

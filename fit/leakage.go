@@ -59,8 +59,13 @@ func (w *work) leakage(r *Result) {
 	if most-least < q/4 {
 		u = math.Max(u, q/math.Sqrt(12)) // equal readings share one error of rounding
 	}
-	abs := w.relativeUsed(math.Max(math.Abs(i), q)) * math.Max(math.Abs(i), q)
-	r.Idss = Quantity{Value: w.sign * i, U: u, UBetween: math.NaN(), UAbsolute: rss(u, abs), N: n}
+	size := math.Max(math.Abs(i), q)
+	abs := w.relativeUsed(size) * size
+	var b budget
+	b.add(InScatter, u, 1)
+	w.addCurrent(&b, size, size, 1)
+	w.addKelvin(&b, leakPerKelvin*i)
+	r.Idss = w.quantity(w.sign*i, &b, n, float64(n-1))
 	w.judgeLeakage(i, q, math.Max(room/math.Sqrt(float64(n)), u), abs)
 }
 

@@ -170,9 +170,11 @@ func (w *work) tangent(r *resistive) (Threshold, bool) {
 	n := l.to - l.from
 	i := w.pts[min(len(w.pts)-1, r.from[l.to-1])].i
 	t := Threshold{From: r.from[l.from], To: w.oneBeyond(r, l.to)}
-	uvt = math.Max(uvt, w.stepFloor((t.From+t.To)/2))
-	t.Vt = w.gateQuantity(vt, uvt, l.model(), n)
-	t.Beta = w.withGain(Quantity{Value: b, U: ub, UBetween: math.NaN(), N: n}, i, 1, 1)
+	nu := float64(n - 2)
+	// G is β (x - V_T): an offset of the current is one of G, over V_DS.
+	perOffset := -1 / (b * r.vds[l.from])
+	t.Vt = w.lineQuantity(vt, uvt, 0, l.model(), (t.From+t.To)/2, n, nu, i, perOffset)
+	t.Beta = w.gainQuantity(b, ub, n, nu, i, follows{current: 1, gate: 1, beta: 1})
 	return t, true
 }
 
@@ -239,11 +241,15 @@ func (w *work) ratioMethod(r *resistive) (t Threshold, theta Quantity, ok bool) 
 	uvt, ubeta, th, uth := w.throughRatio(r, &l, vt, b)
 	i := w.pts[r.from[to-1]].i
 	t = Threshold{From: r.from[from], To: w.oneBeyond(r, to)}
-	uvt = math.Max(uvt, w.stepFloor((t.From+t.To)/2))
-	t.Vt = w.gateQuantity(vt, uvt, l.model(), m)
-	t.Beta = w.withGain(Quantity{Value: b * b, U: ubeta, UBetween: math.NaN(), N: m}, i, 1, 1)
-	theta = w.withGain(Quantity{Value: th, U: uth, UBetween: math.NaN(), N: m}, i, 0, 1)
-	return t, theta, true
+	nu := float64(m - 2)
+	perOffset := -1 / (b * b * r.vds[from])
+	t.Vt = w.lineQuantity(vt, uvt, 0, l.model(), (t.From+t.To)/2, m, nu, i, perOffset)
+	t.Beta = w.gainQuantity(b*b, ubeta, m, nu, i, follows{current: 1, gate: 1, beta: 1})
+	over := w.gainBudget(th, uth, i, follows{gate: 1, beta: 1})
+	if x := r.x[to-1] - vt; x > 0 { // θ = (β x/G - 1)/x
+		w.addCurrent(&over, i, 0, (1+th*x)/(x*i))
+	}
+	return t, w.quantity(th, &over, m, nu), true
 }
 
 // scatterOfRatio is the standard deviation of Y at slope point j.

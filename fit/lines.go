@@ -69,6 +69,14 @@ func (l *line) model() float64 {
 	return rss(u, (v1/b1-v2/b2)/2)
 }
 
+// toZero is what the abscissa x where the line meets zero changes by per unit of
+// ordinate k, with the other sign.
+func (l *line) toZero(x float64, k int) float64 {
+	_, b := l.p.at(0)
+	v, _ := l.p.basis(x)
+	return l.p.share(&v, k) / b
+}
+
 // slope is the slope of the line, with its random uncertainty.
 func (l *line) slope() (b, u float64) {
 	_, b = l.p.at(0)
@@ -148,9 +156,11 @@ func (w *work) squareRoot() (Threshold, bool) {
 	n := len(l.sigma)
 	i := w.pts[l.to-1].i
 	t := Threshold{From: l.from, To: l.to}
-	uvt = math.Max(uvt, w.stepFloor((l.from+l.to)/2))
-	t.Vt = w.gateQuantity(vt, uvt, l.model(), n)
-	t.Beta = w.withGain(Quantity{Value: 2 * b * b, U: 4 * b * ub, UBetween: math.NaN(), N: n}, i, 1, 2)
+	nu := float64(n - 2)
+	t.Vt = w.lineQuantity(vt, uvt, 0, l.model(), (l.from+l.to)/2, n, nu, i, w.perOffset(i, n, func(k int) (c, current float64) {
+		return -l.toZero(vt, k) / (2 * math.Max(l.y[k], l.floor[k])), l.y[k] * l.y[k]
+	}))
+	t.Beta = w.gainQuantity(2*b*b, 4*b*ub, n, nu, i, follows{current: 1, gate: 2, beta: 1})
 	return t, true
 }
 
@@ -298,14 +308,4 @@ func (w *work) straight(l *line) bool {
 		return false
 	}
 	return true
-}
-
-// gateQuantity makes a quantity of a gate voltage v (n-channel sign) with random
-// part u; other is its further absolute uncertainty, V.
-func (w *work) gateQuantity(v, u, other float64, n int) Quantity {
-	abs := rangeFor(w.s.Gate, v).absolute(v)
-	return Quantity{
-		Value: w.sign * v, U: u, UBetween: math.NaN(),
-		UAbsolute: rss(u, rss(abs, other)), N: n,
-	}
 }

@@ -180,6 +180,7 @@ func TestAbsoluteUncertaintyOfTheLine(t *testing.T) {
 	s.TestCurrent = 1e-3
 	s.Gate = []Accuracy{{Top: 6, Percent: 0.5, Resolution: 1e-3}}
 	s.Current = []Accuracy{{Top: 10, Percent: 2, Resolution: 1e-6}}
+	s.Temperature = 25 // known to 1 K: 4 mV of V_T, 1.7/298 of β
 	r := One(c, s)
 	r.Choose("sqrt")
 	if !(r.Vt.UAbsolute > 8.66e-3 && r.Vt.UAbsolute < 11e-3) {
@@ -189,7 +190,7 @@ func TestAbsoluteUncertaintyOfTheLine(t *testing.T) {
 		t.Errorf("random u(V_T) %g V holds more than scatter", r.Vt.U)
 	}
 	// β = 2b²: 2 % of current and twice 0.5 % of gate, as rectangles.
-	want := 2 * math.Hypot(0.02/math.Sqrt(3), 2*0.005/math.Sqrt(3))
+	want := 2 * math.Hypot(math.Hypot(0.02/math.Sqrt(3), 2*0.005/math.Sqrt(3)), 1.7/298.15)
 	near(t, "absolute u(β)", r.Beta.UAbsolute, want, 0.2*want)
 	if r.Has(CodeNoAccuracy) {
 		t.Error("statements are there")

@@ -95,27 +95,33 @@ func stateCode(s State) string {
 	return ""
 }
 
-// tellAccuracy says which statement is missing for an absolute uncertainty.
+// tellAccuracy says which statement is missing for the uncertainties that need them.
 func (w *work) tellAccuracy() {
-	missing := ""
+	missing, between := "", false // the tolerance of R_L alone does not matter between sessions
 	if p := w.pts[len(w.pts)-1]; math.IsNaN(rangeFor(w.s.Gate, p.vg).absolute(p.vg)) {
-		missing = "the gate meter's accuracy"
+		missing, between = "the gate meter's accuracy", true
 	}
 	if math.IsNaN(w.relativeUsed(w.pts[len(w.pts)-1].i)) {
 		if missing != "" {
 			missing += " and "
 		}
-		onLoad := w.onLoad || !w.ammeter
+		onLoad := w.onScaleOfLoad()
+		stated := !math.IsNaN(w.scaleAt(w.pts[len(w.pts)-1].i, onLoad).offset)
+		between = between || !stated
 		switch {
 		case !onLoad:
 			missing += "the ammeter's accuracy"
-		case math.IsNaN(w.s.RLTol):
+		case stated:
 			missing += "the tolerance of R_L"
 		default:
 			missing += "the accuracy of the meter at the load resistor"
 		}
 	}
-	if missing != "" {
+	switch {
+	case missing == "":
+	case between:
+		w.warn(CodeNoAccuracy, "Not given: "+missing+"; no uncertainty between sessions and no absolute one.")
+	default:
 		w.warn(CodeNoAccuracy, "Not given: "+missing+"; no absolute uncertainty.")
 	}
 }
@@ -127,6 +133,8 @@ func (w *work) byCurrent(r *Result) {
 	r.Crossings = test.count
 	r.Vgsth = w.crossingQuantity(test, w.s.TestCurrent)
 	r.VgsIdle = w.crossingQuantity(idle, w.s.IdleCurrent)
+	r.ReadTest = w.readOn(test.b-1, test.b+1, w.s.TestCurrent, w.s.TestCurrent/test.gm)
+	r.ReadIdle = w.readOn(idle.b-1, idle.b+1, w.s.IdleCurrent, w.s.IdleCurrent/idle.gm)
 	w.transconductances(r, idle)
 
 	why := ""
@@ -152,16 +160,6 @@ func (w *work) byCurrent(r *Result) {
 	if r.Vgsth.Ok() {
 		w.diodeLike(test.v)
 	}
-}
-
-// crossingQuantity makes a quantity of a crossing: the gate meter's statement
-// and the current's over the slope go into the absolute uncertainty.
-func (w *work) crossingQuantity(c crossing, i float64) Quantity {
-	if math.IsNaN(c.v) {
-		return None()
-	}
-	u := math.Max(c.u, w.stepFloor(c.b))
-	return w.gateQuantity(c.v, u, w.relativeUsed(i)*i/c.gm, c.n)
 }
 
 // tellCrossing warns of what is wrong with a crossing and gives the sentence

@@ -6,14 +6,20 @@ import (
 )
 
 // Quantity is an estimated number with its three standard uncertainties
-// (k = 1). NaN in Value: it could not be had; NaN in an uncertainty: not known.
+// (k = 1), each of which holds the one before it. NaN in Value: it could not be had;
+// NaN in an uncertainty: not known, because an accuracy statement that enters it is
+// missing. UBetween and UAbsolute need those of the gate meter and of the meter of
+// the current, as far as the quantity follows them; UAbsolute the tolerance of R_L as
+// well, where the current is read across it. A temperature that was not recorded is no
+// reason: room temperature is assumed.
 // N is the number of points it rests on.
 type Quantity struct {
 	Value     float64 // SI unit of the field it stands in
 	U         float64 // within a session on the same meter and range: the random part only
-	UBetween  float64 // between sessions on one bench
+	UBetween  float64 // between sessions on one bench: counts of the statements, drift of R_L, temperature as well
 	UAbsolute float64 // against the SI unit: meter gain, R_L tolerance, burden included
 	N         int
+	Budget    *Budget // how the three come about; nil unless [Setup.Budget] asks for it
 }
 
 // None is the quantity that could not be had.
@@ -93,6 +99,8 @@ type Result struct {
 	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
 	GmRising  bool                 // GmMax lies at the end of the sweep: a longer one would give more
 	Shape     Shape                // of the curve, beside its thresholds
+	ReadTest  ReadOn               // ranges on which the readings behind Vgsth were taken
+	ReadIdle  ReadOn               // the same of VgsIdle
 	Crossings int                  // upward crossings of the test current
 	Levels    []Level              // the curve itself: gate voltages at the currents of [LevelCurrents] inside the sweep, ascending by current
 	LeftOut   []LeftOut            // ascending by Index

@@ -101,6 +101,26 @@ func (w *work) stepFloor(b int) float64 {
 	return a.Resolution / math.Sqrt(12)
 }
 
+// scatterFreedom is the degrees of freedom of [work.scatterNear]: half the number of
+// points compared, for neighbours share theirs (judgement); +Inf where the step of the
+// digits stands in.
+func (w *work) scatterFreedom(b int) float64 {
+	b = max(0, min(b, len(w.pts)-1))
+	n := 0
+	for j := max(2, b-scatterReach); j < min(len(w.pts)-2, b+scatterReach); j++ {
+		if i := w.pts[j].i; i > scatterRatio*w.pts[b].i*tie || i*tie < w.pts[b].i/scatterRatio {
+			continue
+		}
+		if _, _, ok := w.residual(j); ok {
+			n++
+		}
+	}
+	if n == 0 {
+		return math.Inf(1)
+	}
+	return math.Max(1, float64(n)/2)
+}
+
 // logSlope is d ln I/dV from point j to point k, 1/V; NaN where there is none.
 func (w *work) logSlope(j, k int) float64 {
 	if j < 0 || k >= len(w.pts) || j >= k {

@@ -36,7 +36,7 @@ func (w *work) shapeOf(t *whole) Shape {
 	s := NoShape()
 	s.Misfit = t.misfit
 	n := len(t.vg)
-	random, _ := t.spread(w)
+	random, _, _ := t.spread(w)
 	a := 2 * math.Exp(t.p[parN]) * thermalVoltage
 	s.Knee = Quantity{Value: a, U: a * random[2], UBetween: math.NaN(), UAbsolute: math.NaN(), N: n}
 	if k := slices.Index(t.free, parLambda); k >= 0 {

@@ -51,6 +51,8 @@ func (w *work) spot(r *Result) {
 	}
 	r.Vgsth = w.spotAt(w.s.TestCurrent)
 	r.VgsIdle = w.spotAt(w.s.IdleCurrent)
+	r.ReadTest = w.readOn(0, len(w.pts), w.s.TestCurrent, w.spotPerCurrent(&w.pts[0], w.s.TestCurrent))
+	r.ReadIdle = w.readOn(0, len(w.pts), w.s.IdleCurrent, w.spotPerCurrent(&w.pts[0], w.s.IdleCurrent))
 	w.spotGain(r)
 	asked, got := 0, 0
 	for _, x := range [...]struct {
@@ -117,7 +119,7 @@ func (w *work) spotAt(i float64) Quantity {
 	}
 	if near >= 0 {
 		p := &w.pts[near]
-		return w.gateQuantity(p.vg, w.spotU(p), w.spotGainError(p, i), 1)
+		return w.spotQuantity(p.vg, p, i, w.spotU(p), 0, 1)
 	}
 	if len(w.pts) == 2 {
 		a, b := &w.pts[0], &w.pts[1]
@@ -136,7 +138,7 @@ func (w *work) spotAt(i float64) Quantity {
 		w.warn(CodeSpotOnly, "Read at "+amps(p.i)+"; carried to "+amps(i)+" by the given transconductance, "+
 			si(w.gate*step, "V")+".")
 		// A given g_m is taken to be good to a tenth.
-		return w.gateQuantity(p.vg+step, rss(w.spotU(p), 0.1*step), w.spotGainError(p, i), 1)
+		return w.spotQuantity(p.vg+step, p, i, w.spotU(p), 0.1*step, 1)
 	}
 	p := &w.pts[0]
 	if len(w.pts) == 2 && math.Abs(w.pts[1].i-i) < math.Abs(p.i-i) {
@@ -144,7 +146,7 @@ func (w *work) spotAt(i float64) Quantity {
 	}
 	if d := math.Abs(p.i-i) / i; d <= spotLoose {
 		w.warn(CodeSpotOnly, "Read at "+amps(p.i)+", not at "+amps(i)+": "+si(spotSlope*d, "V")+" of uncertainty for that.")
-		return w.gateQuantity(p.vg, rss(w.spotU(p), spotSlope*d), w.spotGainError(p, i), 1)
+		return w.spotQuantity(p.vg, p, i, w.spotU(p), spotSlope*d, 1)
 	}
 	return None()
 }
@@ -155,26 +157,39 @@ func (w *work) spotBetween(a, b *point, i float64) Quantity {
 	c.b = 1
 	w.bounds(&c, i, 0)
 	t := (c.v - a.vg) / (b.vg - a.vg)
-	u := rss(c.u, rss((1-t)*w.spotU(a), t*w.spotU(b)))
 	w.warn(CodeCoarseNearCurrent, "Interpolated between "+amps(a.i)+" and "+amps(b.i)+" for "+amps(i)+".")
-	return w.gateQuantity(c.v, u, c.u, 2)
+	return w.spotQuantity(c.v, b, i, rss((1-t)*w.spotU(a), t*w.spotU(b)), c.u, 2)
 }
 
-// spotGainError is the gate voltage that the uncertainty of the current stands
-// for, V; NaN without a transconductance or a statement.
-func (w *work) spotGainError(p *point, i float64) float64 {
-	rel := w.relativeUsed(i)
+// spotQuantity makes a quantity of a gate voltage v read at or near point p: step and
+// noise of the display, what carrying it to current i may be wrong by, V, and the rest
+// as of a crossing.
+func (w *work) spotQuantity(v float64, p *point, i, display, carried float64, n int) Quantity {
+	var b budget
+	b.add(InGateStep, display, 1)
+	b.add(InReading, math.Abs(carried), 1)
+	perCurrent := w.spotPerCurrent(p, i)
+	w.addGate(&b, v)
+	w.addCurrent(&b, i, perCurrent, perCurrent/i)
+	t, _ := w.warmth()
+	w.addKelvin(&b, gatePerKelvin(perCurrent, t))
+	return w.gateVoltage(v, &b, n, math.Inf(1))
+}
+
+// spotPerCurrent is what the gate voltage changes by per unit of relative current, V:
+// I/g_m of a given transconductance, of the two readings, or as is common.
+func (w *work) spotPerCurrent(p *point, i float64) float64 {
 	gm := math.Abs(at(w.c.Gm, p.k))
 	if positive(gm) {
-		return rel * i / gm
+		return i / gm
 	}
 	if len(w.pts) == 2 {
 		if a, b := &w.pts[0], &w.pts[1]; b.i > a.i && b.vg > a.vg {
-			return rel * i * (b.vg - a.vg) / (b.i - a.i)
+			return i * (b.vg - a.vg) / (b.i - a.i)
 		}
 	}
 	// The square law with 0.3 V overdrive: v/2 per unit of relative current.
-	return rel * 0.15
+	return 0.15
 }
 
 // spotGain fills in the transconductance at the idle current: as given at about
@@ -227,7 +242,7 @@ func (w *work) spotGain(r *Result) {
 	// slope at i is smaller than its own.
 	fade := func(i float64) float64 { return math.Exp(-math.Sqrt(math.Max(i, 0)) * d / rise / spotKnee) }
 	u = rss(u, g*rss(spotKnee*(fade(a.i)-fade(b.i))/d, fade(i)))
-	r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: 2}, i, 1, 1)
+	r.GmIdle = w.gainQuantity(g, u, 2, math.Inf(1), i, w.slopeFollows())
 	w.warn(CodeSpotOnly, "Transconductance is from the two spots at "+amps(a.i)+" and "+amps(b.i)+", as of a square law through both.")
 }
 

@@ -44,6 +44,7 @@ func TestSpots(t *testing.T) {
 	s.TestCurrent = 10e-3
 	s.Gate = []Accuracy{{Resolution: 1e-3, Top: 6, Percent: 0.5, Counts: 2}}
 	s.Current = []Accuracy{{Top: 60e-3, Percent: 1, Counts: 3, Resolution: 1e-4}}
+	s.Temperature = 25 // known to 1 K
 	r := One(Curve{Vg: []float64{3}, Id: []float64{10.15e-3}}, s)
 	near(t, "u with 1 mV steps", r.Vgsth.U, 0.2887e-3, 1e-6)
 	if !(r.Vgsth.UAbsolute > 9.815e-3 && r.Vgsth.UAbsolute < 11e-3) {

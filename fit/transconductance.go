@@ -318,11 +318,19 @@ func (w *work) transconductances(r *Result, idle crossing) {
 		// The greatest of many is great by chance as well: the scatter of one of
 		// them is left in.
 		u = rss(u, chance)
-		r.GmMax = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, s.i[at], 1, 1)
 		// Within a window of the end nothing shows that it falls again.
 		r.GmRising = at >= n-m/2-1-m
+		f := follows{current: 1, gate: 1, beta: 1}
+		if r.GmRising {
+			f.beta -= w.risingWithDrive(g, s.i[at])
+		}
+		r.GmMax = w.gainQuantity(g, u, used, float64(used-s.degree-1), s.i[at], f)
 	}
 	if math.IsNaN(idle.v) {
+		return
+	}
+	if idle.gm > 0 && idle.ugm > 0 {
+		r.GmIdle = w.gainQuantity(idle.gm, idle.ugm, idle.n, math.Inf(1), w.s.IdleCurrent, w.slopeFollows())
 		return
 	}
 	j := 0
@@ -331,7 +339,7 @@ func (w *work) transconductances(r *Result, idle crossing) {
 	}
 	g, u, used := w.slopeNear(&s, j, idle.v)
 	if g > 0 {
-		r.GmIdle = w.withGain(Quantity{Value: g, U: u, UBetween: math.NaN(), N: used}, w.s.IdleCurrent, 1, 1)
+		r.GmIdle = w.gainQuantity(g, u, used, float64(used-s.degree-1), w.s.IdleCurrent, w.slopeFollows())
 	}
 }
 
@@ -359,18 +367,22 @@ func (w *work) slopeNear(s *slopePoints, j int, x float64) (g, u float64, n int)
 	return g, u, n
 }
 
-// withGain adds the absolute uncertainty of a quantity that goes with the
-// current's gain to the power ofCurrent and with the gate's gain to the power
-// ofGate (magnitudes), at current i.
-func (w *work) withGain(q Quantity, i, ofCurrent, ofGate float64) Quantity {
-	c := ofCurrent * w.relativeUsed(i)
-	v := w.midGate()
-	if v == 0 {
-		v = 1 // a gain is what matters
+// slopeFollows is how the slope at one current follows gains and gain factor: with
+// I = β f(v) it goes as β f'(v) at f(v) = I/β, the root of β in a square law and β
+// itself where the channel is a resistor.
+func (w *work) slopeFollows() follows {
+	if w.linear() {
+		return follows{current: 1, gate: 1, beta: 1}
 	}
-	g := ofGate * rangeFor(w.s.Gate, v).absolute(v) / v
-	q.UAbsolute = rss(q.U, math.Abs(q.Value)*rss(c, g))
-	return q
+	return follows{current: 1, gate: 1, beta: 0.5}
+}
+
+// risingWithDrive is by how much less, as a power of β, the slope g at the end of a
+// sweep, at current i, changes with the temperature, because the threshold falls and a
+// square law has (dg/dV)/g = g/(2 I).
+func (w *work) risingWithDrive(g, i float64) float64 {
+	t, _ := w.warmth()
+	return kappa * g / (2 * i) * t / alpha
 }
 
 // midGate is a gate voltage in the middle of the sweep, for a gain that holds

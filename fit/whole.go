@@ -10,12 +10,14 @@ import (
 // whole is the transfer model laid through a whole curve.
 type whole struct {
 	transfer
-	from   []int   // index of each point in work.pts
-	noise  float64 // V, scatter of points about the curve, beyond what is stated of them
-	apart  []bool  // points so far off the curve that they do not count
-	scale  []float64
-	misfit float64 // reduced χ², floors included, of the points that count
-	got    lsq.Fit
+	from    []int             // index of each point in work.pts
+	noise   float64           // V, scatter of points about the curve, beyond what is stated of them
+	apart   []bool            // points so far off the curve that they do not count
+	begin   [parCount]float64 // the parameters to start from
+	r, jac  []float64
+	between float64 // V, by how much the threshold differs with other shapes of the knee that do nearly as well
+	misfit  float64 // reduced χ², floors included, of the points that count
+	got     lsq.Fit
 }
 
 // The floors of the weights: what the model itself is wrong by. Without them the few
@@ -36,14 +38,18 @@ const (
 	// weakTheta holds θ only where the points say nothing of it, 1/V; weakLambda
 	// likewise.
 	weakTheta  = 1.0
-	weakLambda = 0.015
+	weakLambda = 0.05
+	// takenOff is the share of the greatest current above which a leakage is taken off.
+	takenOff = 1e-6
 	// wellSaturated is how many times the overdrive the drain voltage must be for a
 	// point behind a load resistor that takes most of the supply to count (judgement).
 	wellSaturated = 2
-	// farOff is how many times the median residual a point may lie off the curve, and
-	// leastOff the least residual, in floors, that is called off (judgement).
-	farOff   = 7
-	leastOff = 4
+	// limitOff is how many standard deviations, of what the other points leave, a point
+	// may stand off the curve; leastOff the least residual, in units of its own sigma,
+	// that is called off; plainlyOff that from which it is told (judgement).
+	limitOff   = 4.5
+	leastOff   = 0.3
+	plainlyOff = 4.0
 	// mostOff is the share of the points that may be so.
 	mostOff = 0.2
 	// plainMisfit is the reduced χ² above which the model does not describe a curve
@@ -53,6 +59,10 @@ const (
 
 // wholeOptions stop a fit when a further step would not matter (parSteps).
 var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
+
+// shapeOptions do for telling the shapes of the knee apart: every parameter within a
+// hundredth of its standard error of the best.
+var shapeOptions = lsq.Options{MaxEvals: 60, Cosine: 2e-3, JacobianWithTrial: true}
 
 // whole is the model laid through the curve, nil where there is none to be had.
 func (w *work) whole() *whole {
@@ -110,44 +120,122 @@ func (w *work) layWhole() (*whole, bool) {
 	}
 	t.noise = usualNoise
 	t.apart = make([]bool, len(t.vg))
-	for range 3 {
-		t.weigh(w)
-		t.got = t.fit(wholeOptions)
-		if !t.got.Reason.Converged() && t.got.Reason != lsq.TooManyEvaluations {
+	t.begin = t.p
+	if !t.chooseFoot(w) || !t.refit(w, wholeOptions) {
+		return nil, false
+	}
+	// What flows with the channel off flows beside it when it is on.
+	if leak, _ := w.offCurrent(t); leak > takenOff*top {
+		for j := range t.i {
+			t.i[j] -= leak
+		}
+		if !t.chooseFoot(w) || !t.refit(w, wholeOptions) {
 			return nil, false
 		}
-		t.noise = t.scatter(w)
-		if !t.setApart() {
+	}
+	for range int(mostOff * float64(len(t.vg))) {
+		k := t.farOff()
+		if k < 0 {
 			break
+		}
+		t.apart[k] = true
+		// A point far off may have chosen the shape of the knee.
+		if !t.chooseFoot(w) || !t.refit(w, wholeOptions) {
+			return nil, false
 		}
 	}
 	t.misfit = t.got.Scale()
 	return t, true
 }
 
-// setApart finds the points that stand far off the curve, by the median of all
-// residuals; it reports whether they are others than before.
-func (t *whole) setApart() (changed bool) {
-	t.scale = t.scale[:0]
-	for j := range t.vg {
-		t.scale = append(t.scale, math.Abs(t.residual(j)))
-	}
-	limit := math.Max(farOff*median(t.scale), leastOff)
-	n := 0
-	for j := range t.vg {
-		off := math.Abs(t.residual(j)) > limit
-		if off {
-			n++
+// chooseFoot fits each shape of the knee once and keeps the one that describes the
+// points best; the smooth one unless another is plainly better.
+func (t *whole) chooseFoot(w *work) bool {
+	noise := t.noise
+	best, p, foot := math.Inf(1), t.p, SmoothFoot
+	var ssr, vt [3]float64
+	for k, f := range [...]Foot{SmoothFoot, SharpFoot, KinkedFoot} {
+		t.p, t.noise, t.foot = t.begin, noise, f
+		for j := range t.slope {
+			t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
 		}
-		changed = changed || off != t.apart[j]
+		ssr[k] = math.Inf(1)
+		if !t.refit(w, shapeOptions) {
+			continue
+		}
+		ssr[k], vt[k] = t.got.SSR, t.p[parVt]
+		if t.got.SSR < plainlyBetter*best || math.IsInf(best, 1) {
+			best, p, foot = t.got.SSR, t.p, f
+		}
 	}
-	if float64(n) > mostOff*float64(len(t.vg)) {
+	t.p, t.foot, t.between = p, foot, 0
+	for k := range ssr {
+		if ssr[k] < hardlyWorse*best {
+			t.between = math.Max(t.between, math.Abs(vt[k]-p[parVt]))
+		}
+	}
+	return !math.IsInf(best, 1)
+}
+
+// plainlyBetter is the share of the weighted sum of squares below which another
+// shape of the knee is taken (judgement).
+const plainlyBetter = 0.5
+
+// hardlyWorse is how many times that of the shape taken the sum of squares of another
+// may be for the distance of their thresholds to count as uncertainty (judgement).
+const hardlyWorse = 5
+
+// refit weighs the points anew and fits.
+func (t *whole) refit(w *work, o lsq.Options) bool {
+	t.weigh(w)
+	t.got = t.fit(o)
+	if r := t.got.Reason; !r.Converged() && r != lsq.TooManyEvaluations && r != lsq.Stuck {
 		return false
 	}
-	for j := range t.vg {
-		t.apart[j] = math.Abs(t.residual(j)) > limit
+	t.noise = t.scatter(w)
+	return true
+}
+
+// farOff is the point that stands farthest off the curve that the others make, by
+// its studentised deleted residual; -1 where none stands out.
+//
+// Source: D. A. Belsley, E. Kuh and R. E. Welsch, Regression Diagnostics (1980),
+// section 2.1 (from memory). Checked: TestOneBadPoint.
+func (t *whole) farOff() int {
+	m, n := t.rows(), len(t.free)
+	t.room(m, n)
+	if !t.eval(t.got.P, t.r, t.jac) {
+		return -1
 	}
-	return changed
+	free := float64(-n - 1)
+	for j := range t.apart {
+		if !t.apart[j] {
+			free++
+		}
+	}
+	if free < 1 {
+		return -1
+	}
+	worst, at := limitOff, -1
+	for j := range t.vg {
+		if t.apart[j] {
+			continue
+		}
+		h := 0.0
+		for f := range n {
+			for e := range n {
+				if c := t.got.Cov(f, e); !math.IsNaN(c) {
+					h += t.jac[f*m+j] * c * t.jac[e*m+j]
+				}
+			}
+		}
+		r2 := t.r[j] * t.r[j] / math.Max(1-h, 1e-6)
+		left := math.Max(t.got.SSR-r2, 1e-12)
+		if z := math.Sqrt(r2 * free / left); z > worst && math.Abs(t.r[j]) > leastOff {
+			worst, at = z, j
+		}
+	}
+	return at
 }
 
 // residual of point j, in units of what it may be off.
@@ -157,6 +245,14 @@ func (t *whole) residual(j int) float64 {
 		s /= noWeight
 	}
 	return (t.solved[j] - t.i[j]) / s
+}
+
+// room makes scratch for residuals and derivatives.
+func (t *whole) room(m, n int) {
+	if cap(t.r) < m*(n+1) {
+		t.r = make([]float64, (m+8)*(n+2))
+	}
+	t.r, t.jac = t.r[:m], t.r[m:m*(n+1)]
 }
 
 // noWeight is the factor to sigma that takes a point out of a fit.

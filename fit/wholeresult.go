@@ -34,21 +34,29 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	for j := range t.vg {
 		if !t.apart[j] {
 			n++
+		}
+		if !t.apart[j] || math.Abs(t.residual(j)) < plainlyOff {
 			continue
 		}
 		p := &w.pts[t.from[j]]
 		w.leave(p.k, CodeOutOfLine, "stands "+si(math.Abs(t.solved[j]-t.i[j])/math.Max(t.slope[j], 1e-9), "V")+" off the fitted curve; not used for the threshold by it")
 	}
-	random, model := t.spread(w)
-	top := slices.Max(t.i)
-	vt := Quantity{Value: t.p[parVt], U: random[0], N: n}
+	random, model, offset := t.spread(w)
+	top, nu := slices.Max(t.i), float64(n-len(t.free))
 	out := Threshold{From: t.from[0], To: t.from[len(t.from)-1] + 1}
-	out.Vt = w.gateQuantity(vt.Value, math.Max(random[0], w.stepFloor(t.middle())), model[0], n)
+	out.Vt = w.lineQuantity(t.p[parVt], random[0], t.between, model[0], t.middle(), n, nu, top, offset[0])
 	beta := math.Exp(t.p[parBeta])
-	out.Beta = w.withGain(Quantity{Value: beta, U: beta * random[1], UBetween: math.NaN(), N: n}, top, 1, 2)
-	out.Beta.UAbsolute = rss(out.Beta.UAbsolute, beta*model[1])
-	out.Theta = w.withGain(Quantity{Value: t.p[parTheta], U: random[3], UBetween: math.NaN(), N: n}, top, 0, 1)
-	out.Theta.UAbsolute = rss(out.Theta.UAbsolute, model[3])
+	b := w.gainBudget(beta, beta*random[1], top, follows{current: 1, gate: 2, beta: 1})
+	w.addCurrent(&b, top, beta, beta*offset[1])
+	b.add(InModel, beta*model[1], 1)
+	out.Beta = w.quantity(beta, &b, n, nu)
+	b = w.gainBudget(t.p[parTheta], random[3], top, follows{gate: 1, beta: 1})
+	w.addCurrent(&b, top, 0, offset[3])
+	b.add(InModel, model[3], 1)
+	out.Theta = w.quantity(t.p[parTheta], &b, n, nu)
+	if !(random[3] > 0) { // at its bound: nothing is known of it
+		out.Theta = None()
+	}
 	r.Shape = w.shapeOf(t)
 	return out, true
 }
@@ -108,12 +116,13 @@ func (t *whole) farthest() string {
 }
 
 // spread gives, for every free parameter in order, the standard deviation that the
-// scatter of the points causes, and that which the floors would if they were scatter.
-func (t *whole) spread(w *work) (random, model [parCount]float64) {
+// scatter of the points causes, that which the floors would if they were scatter, and
+// what it changes by per A that the meter of the current is off at the greatest one.
+func (t *whole) spread(w *work) (random, model, offset [parCount]float64) {
 	m, n := t.rows(), len(t.free)
-	buf := make([]float64, m*(n+1))
-	r, jac := buf[:m], buf[m:]
-	if !t.eval(t.got.P, r, jac) {
+	t.room(m, n)
+	jac := t.jac
+	if !t.eval(t.got.P, t.r, jac) {
 		return
 	}
 	top := slices.Max(t.i)
@@ -131,8 +140,10 @@ func (t *whole) spread(w *work) (random, model [parCount]float64) {
 			y := h / t.sigma[j] * t.floor(j, top)
 			a += x * x
 			b += y * y
+			t.r[j] = h / t.sigma[j]
 		}
 		random[f], model[f] = math.Sqrt(a), math.Sqrt(b)
+		offset[f] = w.perOffset(top, len(t.vg), func(j int) (c, current float64) { return t.r[j], t.i[j] })
 	}
-	return random, model
+	return random, model, offset
 }

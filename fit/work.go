@@ -47,8 +47,13 @@ type work struct {
 	model     *whole       // the transfer model laid through the curve; nil: none
 	laid      bool         // it was tried
 	along     along        // the model near a crossing, scratch
-	left      []LeftOut
-	warns     []Warning
+	out       []standout   // scratch
+
+	apart          bool    // the next two were found
+	gateScatter    float64 // V, of single gate readings about the curve
+	currentScatter float64 // of single currents, as a share
+	left           []LeftOut
+	warns          []Warning
 }
 
 // point is one usable point, with the signs of an n-channel part.

@@ -290,7 +290,7 @@ func WriteJSON(w io.Writer, s Sheet) error {
 	devices := make(rows, 0, len(s.Devices))
 	for i := range s.Devices {
 		d := &s.Devices[i]
-		short := deviceDocOf(d)
+		short := s.deviceDocOf(d)
 		doc := fullDeviceDoc{
 			ID: d.ID, Device: d.Name, Package: short.Package, Side: short.Side, DateCode: optional(d.DateCode),
 			Marking: optional(d.Marking), Tube: optional(d.Tube), Role: string(d.Role), Excluded: d.Excluded,
@@ -356,8 +356,9 @@ type changeDoc struct {
 	Reason  optional `json:"reason"`
 }
 
-// DeviceJSON writes the history and the audit trail of one device.
-func DeviceJSON(w io.Writer, f DeviceFile) error {
+// DeviceJSON writes the history and the audit trail of one device; s is the sheet of
+// its lot.
+func DeviceJSON(w io.Writer, f DeviceFile, s Sheet) error {
 	d := &f.Device
 	sweeps, changes := rows{}, rows{}
 	for i := range d.Sweeps {
@@ -366,7 +367,7 @@ func DeviceJSON(w io.Writer, f DeviceFile) error {
 	for _, c := range f.Changes {
 		changes = append(changes, changeDocOf(c))
 	}
-	return writeObject(w, member{"schema", Schema}, member{"lot", f.Lot.Name}, member{"device", deviceDocOf(d)},
+	return writeObject(w, member{"schema", Schema}, member{"lot", f.Lot.Name}, member{"device", s.deviceDocOf(d)},
 		member{"role", string(d.Role)}, member{"note", optional(d.Note)}, member{"sweeps", sweeps}, member{"changes", changes})
 }
 

@@ -59,6 +59,11 @@ func FitTable(w io.Writer, s Sheet, style Style) error {
 	}
 	notMeasured(p, s, style)
 	remarks(p, s, style)
+	if s.Budget {
+		for i := range s.Devices {
+			budgets(p, &s, &s.Devices[i], style)
+		}
+	}
 	return p.err
 }
 

@@ -146,9 +146,11 @@ type deviceDoc struct {
 	State   string   `json:"state"`
 	Sweeps  []string `json:"sweeps"`
 	quantities
-	Method   optional      `json:"method"`
-	PerSweep []sweepDoc    `json:"per_sweep"`
-	Warnings []fit.Warning `json:"warnings"`
+	Method   optional          `json:"method"`
+	PerSweep []sweepDoc        `json:"per_sweep"`
+	Warnings []fit.Warning     `json:"warnings"`
+	Budget   *byKey[budgetDoc] `json:"budget,omitempty"`
+	Shape    *shapeDoc         `json:"shape,omitempty"`
 }
 
 // stateCodes names the warning code that goes with a state.
@@ -163,9 +165,13 @@ var stateCodes = map[fit.State]string{
 }
 
 // warningsOf gives the warnings of a device; a state other than measured is
-// always among them, so that a null has its reason.
-func warningsOf(d *Device) []fit.Warning {
+// always among them, and what tells why a measured one lacks a quantity, so that a
+// null has its reason.
+func (s *Sheet) warningsOf(d *Device) []fit.Warning {
 	list := append([]fit.Warning{}, d.Result.Warnings...)
+	if d.State() == fit.Measured {
+		list = append(list, d.Result.Missing(isNumber(s.TestCurrent), isNumber(s.IdleCurrent))...)
+	}
 	code, ok := stateCodes[d.State()]
 	if !ok || d.Result.Has(code) || d.State() == fit.Declined && len(list) > 0 {
 		return list
@@ -173,11 +179,14 @@ func warningsOf(d *Device) []fit.Warning {
 	return append(list, fit.Warning{Code: code, Text: d.Reason()})
 }
 
-func deviceDocOf(d *Device) deviceDoc {
+func (s *Sheet) deviceDocOf(d *Device) deviceDoc {
 	doc := deviceDoc{
 		Device: d.Name, Package: optional(d.Package), Side: optional(d.Side), State: string(d.State()),
 		Sweeps: []string{}, quantities: quantitiesOf(&d.Result), Method: optional(d.Result.Method),
-		PerSweep: []sweepDoc{}, Warnings: warningsOf(d),
+		PerSweep: []sweepDoc{}, Warnings: s.warningsOf(d),
+	}
+	if s.Budget {
+		doc.Budget, doc.Shape = byBudget(&d.Result), shapeDocOf(d.Result.Shape)
 	}
 	if doc.State == "" {
 		doc.State = string(fit.Declined)
@@ -195,7 +204,7 @@ func deviceDocOf(d *Device) deviceDoc {
 func FitJSON(w io.Writer, s Sheet) error {
 	devices := make(rows, 0, len(s.Devices))
 	for i := range s.Devices {
-		devices = append(devices, deviceDocOf(&s.Devices[i]))
+		devices = append(devices, s.deviceDocOf(&s.Devices[i]))
 	}
 	return writeObject(w,
 		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"sorted_by", optional(s.SortedBy)},

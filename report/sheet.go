@@ -25,6 +25,8 @@ type Sheet struct {
 	TestBasis   string  // where it came from: "part", "--at", "spot list", "default"
 	IdleCurrent float64 // A; NaN: the part has none
 
+	Budget bool // the results hold how their uncertainties come about, and that is shown
+
 	Spread  lot.Spread
 	Sorting *lot.Sorting // nil: not sorted
 	Version string       // of the program

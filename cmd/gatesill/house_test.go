@@ -15,7 +15,7 @@ var mayImport = map[string][]string{
 	"store/record":     {},
 	"store":            {"store/record"},
 	"acquire":          {"store/record", "acquire/"},
-	"fit":              {"fit/lsq"},
+	"fit":              {"fit/lsq", "fit/stats"},
 	"fit/lsq":          {},
 	"fit/stats":        {},
 	"fit/lot":          {"fit", "fit/stats"},

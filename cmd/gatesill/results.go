@@ -12,14 +12,20 @@ func atFlag(cmd *cobra.Command, o *job.SheetOptions) {
 	num(cmd.Flags(), &o.At, "at", "A", "test current (default: the part's, a spot list's own, else 1 mA)")
 }
 
+// fitMethods are those of the extrapolated threshold that may be asked for.
+var fitMethods = []string{"auto", "current", "sqrt", "linear", "ratio", "curve"}
+
 func fitCmd(env *job.Env) *cobra.Command {
 	var o job.SheetOptions
 	cmd := &cobra.Command{
 		Use: "fit LOT [DEVICE...]", Short: "Threshold, gate bias and transconductance of each device",
 		Long: `Fits the sweeps of a lot: V_GS(th) at the test current and gate bias at the idle
 current by constant current, an extrapolated threshold where the region covered
-allows one, transconductance, drain leakage. Signs are the device's own.`,
+allows one, transconductance, drain leakage. Signs are the device's own. With
+--budget it shows what the uncertainties of one device are made of: within the
+session, between sessions on one bench, and absolute.`,
 		Example: `  gatesill fit bag1
+  gatesill fit bag1 D7 --budget
   gatesill fit bag1 D7 --at 250uA --method sqrt --json`,
 		Args: between(1, -1),
 		RunE: func(cmd *cobra.Command, args []string) error {
@@ -30,7 +36,11 @@ allows one, transconductance, drain leakage. Signs are the device's own.`,
 	}
 	o.Method = "auto"
 	atFlag(cmd, &o)
-	cmd.Flags().Var(choice{&o.Method, []string{"auto", "current", "sqrt", "linear", "ratio"}}, "method", "of the extrapolated threshold")
+	cmd.Flags().Var(choice{&o.Method, fitMethods}, "method", "of the extrapolated threshold")
+	if err := cmd.RegisterFlagCompletionFunc("method", cobra.FixedCompletions(fitMethods, cobra.ShellCompDirectiveNoFileComp)); err != nil {
+		panic(err) // the flag is not there
+	}
+	cmd.Flags().BoolVar(&o.Budget, "budget", false, "of one device: how each uncertainty comes about")
 	return cmd
 }
 

@@ -69,7 +69,7 @@ func SortInto(devs []Device, opt SortOptions) (Sorting, error) {
 			s.Unsorted = append(s.Unsorted, Unsorted{devs[i].Name, w})
 		}
 	}
-	s.Warnings = sortWarnings(&s, placed, g)
+	s.Warnings = append(sortWarnings(&s, placed, g), rangeEdges(devs, opt.By)...)
 	return s, nil
 }
 

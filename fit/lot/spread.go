@@ -51,6 +51,7 @@ func SpreadOf(devs []Device, opt SpreadOptions) Spread {
 	s.Warnings = append(s.Warnings, l.sizeWarnings()...)
 	s.Warnings = append(s.Warnings, l.curveWarnings()...)
 	s.Warnings = append(s.Warnings, l.readingWarnings(s.Summary)...)
+	s.Warnings = append(s.Warnings, rangeEdges(devs, l.sortedBy)...)
 	return s
 }
 

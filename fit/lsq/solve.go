@@ -169,7 +169,7 @@ func (c *run) iterate() Reason {
 		if !moved || !(expected > 0) {
 			return c.end()
 		}
-		length := c.length()
+		length := c.length(c.step)
 		if c.iter == 0 {
 			c.reach = math.Min(c.reach, length)
 		}

@@ -14,11 +14,11 @@ func (s *Solver) scale(j int) float64 {
 	return s.d[j]
 }
 
-// length is ‖D δ‖ of the step.
-func (c *run) length() float64 {
+// length is ‖D δ‖ of a step of the free parameters.
+func (c *run) length(step []float64) float64 {
 	sum := 0.0
 	for k, j := range c.free {
-		v := c.scale(j) * c.step[k]
+		v := c.scale(j) * step[k]
 		sum += v * v
 	}
 	return math.Sqrt(sum)
@@ -35,6 +35,11 @@ func (c *run) damping() bool {
 	c.sel = c.sel[:0]
 	for k := range c.free {
 		c.sel = append(c.sel, k)
+	}
+	if c.undamped() && c.length(c.gn) <= 1.1*c.reach {
+		copy(c.z, c.gn)
+		c.mu = 0
+		return true
 	}
 	low, least := 0.0, 0.0
 	length, fall, ok := c.whole(0)

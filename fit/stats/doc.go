@@ -1,6 +1,6 @@
 // Package stats holds the estimators and tests that the numerical library
-// lacks: accurate moments, order statistics with a named quantile rule, and
-// tests for single outliers.
+// lacks: accurate moments, order statistics with a named quantile rule, tests for
+// single outliers, and the arithmetic of combined uncertainties.
 //
 // It is general: it knows nothing of transistors or lots. It never changes the
 // slices it is given, never panics on data, and says NaN where there are too

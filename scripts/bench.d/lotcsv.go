@@ -27,14 +27,15 @@ var ranges = []struct {
 func main() {
 	devices := flag.Int("devices", 2000, "number of devices")
 	rows := flag.Int("rows", 500, "rows of each device")
+	step := flag.Float64("step", 0.004, "gate step in V")
 	flag.Parse()
-	if err := write(*devices, *rows); err != nil {
+	if err := write(*devices, *rows, *step); err != nil {
 		fmt.Fprintln(os.Stderr, "lotcsv:", err)
 		os.Exit(1)
 	}
 }
 
-func write(devices, rows int) error {
+func write(devices, rows int, step float64) error {
 	w := bufio.NewWriterSize(os.Stdout, 1<<20)
 	rnd := rand.New(rand.NewSource(20240501))
 	w.WriteString("device,vg_V,id_A\n")
@@ -43,7 +44,7 @@ func write(devices, rows int) error {
 		vt := 3 + 0.08*rnd.NormFloat64()         // V
 		beta := 2 * (1 + 0.03*rnd.NormFloat64()) // A/V^2
 		for r := 0; r < rows; r++ {
-			vg := 2.5 + 0.004*float64(r) // V
+			vg := 2.5 + step*float64(r) // V
 			id := beta / 2 * math.Pow(math.Max(vg-vt, 0), 2)
 			id += id*3e-4*rnd.NormFloat64() + 2e-7*rnd.Float64()
 			vg += 3e-4 * rnd.NormFloat64()

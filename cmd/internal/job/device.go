@@ -83,7 +83,7 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
 		return err
 	}
 	if env.JSON {
-		return report.DeviceJSON(env.Out, f)
+		return report.DeviceJSON(env.Out, f, sheet)
 	}
 	return report.DeviceHistory(env.Out, f, sheet, env.style())
 }

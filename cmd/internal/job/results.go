@@ -17,6 +17,9 @@ import (
 
 // Fit fits the lot's sweeps and shows the values.
 func Fit(ctx context.Context, env *Env, name string, o SheetOptions) error {
+	if o.Budget && len(o.Devices) != 1 {
+		return Usage("gatesill fit "+Quote(name)+" DEVICE --budget", "--budget: needs exactly one device, not %d", len(o.Devices))
+	}
 	s, err := env.Sheet(ctx, name, o)
 	if err != nil {
 		return err

@@ -23,10 +23,11 @@ import (
 // SheetOptions are the choices of [Env.Sheet].
 type SheetOptions struct {
 	At       record.Num // A, test current; unknown: the part's, the spot list's own, else 1 mA
-	Method   string     // "auto", "current", "sqrt", "linear", "ratio"
+	Method   string     // "auto", "current", "sqrt", "linear", "ratio", "curve"
 	Limit    float64    // spread limit in robust spreads, 0: by the lot's size
 	Devices  []string   // only these, empty: all
 	ReadOnly bool       // keep no estimates
+	Budget   bool       // show how the uncertainties come about
 }
 
 // defaultTestCurrent is taken when neither part nor spot list says one: the
@@ -58,7 +59,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	if err := keepNamed(&s, o.Devices); err != nil {
 		return s, err
 	}
-	s.Version, s.Codes = e.Version, fit.Codes
+	s.Version, s.Codes, s.Budget = e.Version, fit.Codes, o.Budget
 	placeSweeps(&s, sweeps)
 	currents(&s, o.At)
 	start := time.Now()
