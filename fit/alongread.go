@@ -124,12 +124,22 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	s.n, s.best = 0, math.Inf(1)
 	begin := t.p
 	shapes := kneeShapes[:]
-	if t.vg[t.a]-t.p[parVt] > clearOfKnee && !t.squeezed {
+	lot := w.s.Lot
+	if lot != nil && t.sparse() {
+		shapes = []kneeShape{{lot.Foot, math.Exp(lot.LnN), lot.LnNSpread, 0}}
+	}
+	own := OwnShape{Sparse: t.sparse()}
+	least := math.Inf(1)
+	if t.vg[t.a]-t.p[parVt] > clearOfKnee && !t.squeezed && len(shapes) > 1 {
 		shapes = shapes[:1] // they differ below only
 	}
 	for k := range shapes {
 		t.p = begin
 		t.take(&shapes[k])
+		if s.best < least {
+			least = s.best
+			own.Ok, own.Foot, own.LnBeta, own.LnN, own.Theta = true, t.foot, t.p[parBeta], t.p[parN], t.p[parTheta]
+		}
 	}
 	if s.n == 0 {
 		return false
@@ -141,6 +151,10 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	}
 	c.v, c.u, c.gm, c.ugm, c.n = v, u, gm, ugm, len(t.vg)
 	c.random = s.scatter()
+	c.own = own
+	if lot != nil && own.Sparse {
+		w.warn(CodeLotShape, "Too few points near "+amps(iref)+": the median shape of the curves of "+count(lot.Devices, "device", "devices")+" of the lot helped.")
+	}
 	return true
 }
 
