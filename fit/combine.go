@@ -5,6 +5,7 @@ import (
 	"math"
 	"slices"
 	"strconv"
+	"strings"
 )
 
 const (
@@ -298,6 +299,13 @@ func meanOf(qs []Quantity, mine Quantity) Quantity {
 	return out
 }
 
+func differs(k Key) string { return capital(keyWords[k]) + " differs between the sweeps" }
+
+// saysDisagreement reports whether w says that two sweeps differ in k.
+func saysDisagreement(w Warning, k Key) bool {
+	return w.Code == CodeSweepsDisagree && strings.HasPrefix(w.Text, differs(k))
+}
+
 // disagreement tells in words what two sweeps give for one quantity: the two that
 // lie furthest apart, by their direction where those differ, else by their place.
 func disagreement(rs []Result, dirs []string, k Key) string {
@@ -323,7 +331,7 @@ func disagreement(rs []Result, dirs []string, k Key) string {
 		one, other = "in sweep "+strconv.Itoa(a+1), "in sweep "+strconv.Itoa(b+1)
 	}
 	x, y := spoken(k, rs[a].At(k).Value), spoken(k, rs[b].At(k).Value)
-	return capital(keyWords[k]) + " differs between the sweeps by more than their uncertainty: " +
+	return differs(k) + " by more than their uncertainty: " +
 		x + " " + one + ", " + y + " " + other + "; the first up sweep is used."
 }
 

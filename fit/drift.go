@@ -48,7 +48,11 @@ type Swept struct {
 // other by more than three standard deviations, the other is named: warning heating
 // or gate-history. Else heating, with the words that the data cannot tell. A gap
 // beyond 3.2 V/W is never heating; less at small and more at large currents, on
-// both sides of the point without a temperature coefficient, always is. Where the curves agree, heating is taken back.
+// both sides of the point without a temperature coefficient, always is.
+//
+// Where the curves agree, or are too short to tell, heating is taken back, and so is
+// sweeps-disagree, if the gate voltages in question differ by less than half of the
+// steps around them: that is interpolation.
 //
 // Cannot be told apart: a heat sink that warms up over the whole sweep, and a
 // charge of the same sign that builds up over it.
@@ -72,13 +76,35 @@ func Drift(sweeps []Swept, r *Result) {
 	}
 	d := newDrift(a, b, sweeps[up].Result.Levels, sweeps[down].Result.Levels)
 	d.downFirst = down < up
-	if len(d.levels) < levelsApart {
-		return // too little for more than Combine says
+	w, apart := d.judge()
+	if len(d.levels) >= levelsApart {
+		r.Warnings = slices.DeleteFunc(r.Warnings, func(w Warning) bool { return w.Code == CodeHeating })
 	}
-	r.Warnings = slices.DeleteFunc(r.Warnings, func(w Warning) bool { return w.Code == CodeHeating })
-	if w, apart := d.judge(); apart {
+	if apart {
 		r.Warnings = append(r.Warnings, w)
+		return
 	}
+	near := true
+	for _, k := range [...]Key{KeyVgsth, KeyVgsIdle} {
+		x, y := *sweeps[up].Result.At(k), *sweeps[down].Result.At(k)
+		if math.Abs(x.Value-y.Value) >= (a.stepAt(a.sign*x.Value)+b.stepAt(b.sign*y.Value))/4 {
+			near = false
+			continue
+		}
+		r.Warnings = slices.DeleteFunc(r.Warnings, func(w Warning) bool { return saysDisagreement(w, k) })
+	}
+	if near {
+		r.Warnings = slices.DeleteFunc(r.Warnings, func(w Warning) bool { return w.Code == CodeHeating })
+	}
+}
+
+// stepAt is the step between the points on both sides of gate voltage v.
+func (w *work) stepAt(v float64) float64 {
+	b := w.after(v)
+	if b < 1 || b == len(w.pts) {
+		return 0
+	}
+	return w.pts[b].vg - w.pts[b-1].vg
 }
 
 // cleaned is the sweep ready to be read off; false where it is no curve.

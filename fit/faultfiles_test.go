@@ -84,7 +84,7 @@ func faultFiles() []faultFile {
 		{device: "not-linear", fault: "the overdrive stays below the drain voltage", law: law(small), bench: small, grid: steps(-0.6, 0.5, 0.02), state: Measured, codes: []string{CodeNotLinear}},
 		{device: "heating", fault: "the part warms up by 6 K/W with a lag of two points, 4 mV/K", from: "l3_fixed10", bench: fixed, grid: usual, down: reversed(usual),
 			gate:  warming(2, 6*4e-3),
-			state: Measured, codes: []string{CodeHeating}, also: []string{CodeSweepsDisagree}},
+			state: Measured, codes: []string{CodeHeating}, also: []string{CodeSweepsDisagree, CodeModelMisfit}},
 		{device: "gate-history", fault: "the down sweep needs 20 mV more gate voltage", from: "l3_fixed10", bench: fixed, grid: usual, down: reversed(usual),
 			gate: func(v, _ float64, late bool) float64 {
 				if late {

@@ -155,10 +155,12 @@ func (g glitchCase) draw(r *rand.Rand, m simMeters, share float64) (bad, oracle 
 }
 
 // Four fifths of all range changes spoiled, one or two readings each, on one meter
-// or on both (self-made): V_GS(th) within 10 mV of the truth wherever the sound
-// readings tell it to that. What they tell is what the same curve gives with the
-// spoiled readings taken out by hand; at steps of 100 mV that leaves gaps of 300 mV in
-// the knee, across which no interpolation sees.
+// or on both (self-made): V_GS(th) within 10 mV of the truth, at steps of 10 mV in
+// every curve and at 50 mV in all but one in a hundred. At steps of 100 mV the rise
+// has five points of which three or four in a row may be spoiled alike, all ten times
+// off, say; then another set of points makes as good a curve, and nothing in the
+// readings tells which. For comparison the same curves with the spoiled readings taken
+// out by hand.
 func TestGlitchedRangeChanges(t *testing.T) {
 	type tally struct{ n, none, far, unsaid, byHand, oscillation int }
 	by := map[float64]*tally{0.01: {}, 0.05: {}, 0.1: {}}
@@ -206,7 +208,7 @@ func TestGlitchedRangeChanges(t *testing.T) {
 				}
 				kept += len(is)
 			}
-			if c.far > c.byHand {
+			if c.far > c.n/10 {
 				t.Logf("%s %s: %+v, worst %.1f mV", name, g, c, 1e3*worst)
 			}
 			a := by[g.step]
@@ -222,7 +224,7 @@ func TestGlitchedRangeChanges(t *testing.T) {
 		}
 	}
 	t.Logf("%d readings spoiled, %d kept (most hardly moved), %d sound points left out", spoiledAll, kept, sound)
-	if by[0.01].far > 0 || by[0.05].far*100 > by[0.05].n || by[0.1].far*10 > 11*by[0.1].byHand {
+	if by[0.01].far > 0 || by[0.05].far*100 > by[0.05].n || by[0.1].far*100 > 7*by[0.1].n {
 		t.Error("too far off")
 	}
 	if sound*50 > spoiledAll {
