@@ -9,6 +9,9 @@ const (
 	// farRatio is the ratio of neighbouring currents from which interpolation is
 	// a guess (judgement).
 	farRatio = 30
+	// lostShare is the share of the distance between two points from which on a
+	// reading along the model is asked whether a polynomial knows better (judgement).
+	lostShare = 0.03
 	// fineStep is the step below which interpolation near the knee is good.
 	fineStep = 0.0105
 	// windowSide is the most points on either side of the crossing that are used.
@@ -122,8 +125,16 @@ func (w *work) gateAt(iref float64) crossing {
 	if c.count > 1 && c.hi-c.lo < 6*e {
 		c.b = (c.b + last + 1) / 2 // noise, not hysteresis: between them
 	}
-	if !w.readAlong(&c, iref) && !w.interpolate(&c, iref, e) {
-		w.bounds(&c, iref, e)
+	plain := c
+	switch along := w.readAlong(&c, iref); {
+	case along && c.u < lostShare*(w.pts[c.b].vg-w.pts[c.b-1].vg):
+	case !w.interpolate(&plain, iref, e):
+		if !along {
+			w.bounds(&c, iref, e)
+		}
+	case !along || plain.u < c.u/2:
+		plain.own = c.own
+		c = plain
 	}
 	w.judgeGrid(&c, iref)
 	return c
