@@ -20,10 +20,12 @@ func fitCmd(env *job.Env) *cobra.Command {
 	cmd := &cobra.Command{
 		Use: "fit LOT [DEVICE...]", Short: "Threshold, gate bias and transconductance of each device",
 		Long: `Fits the sweeps of a lot: V_GS(th) at the test current and gate bias at the idle
-current by constant current, an extrapolated threshold where the region covered
-allows one, transconductance, drain leakage. Signs are the device's own. With
---budget it shows what the uncertainties of one device are made of: within the
-session, between sessions on one bench, and absolute.`,
+current by constant current, read along the device's own curve where the points
+lie far apart; the threshold by a model of the transistor laid through the whole
+curve (curve), or by the square-root line (sqrt), linear extrapolation (linear) or
+ratio (ratio) where that is valid; transconductance, drain leakage. Signs are the
+device's own. --budget shows what the uncertainties of one device are made of:
+within the session, between sessions on one bench, and absolute.`,
 		Example: `  gatesill fit bag1
   gatesill fit bag1 D7 --budget
   gatesill fit bag1 D7 --at 250uA --method sqrt --json`,
