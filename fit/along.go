@@ -105,6 +105,7 @@ func (t *along) choose() bool {
 	t.squeezed = t.f.drain > 0 && w.squeezed(t.c.b)
 	var off float64
 	t.leak, off = w.offCurrent(w.whole())
+	t.a, t.b = -1, -1
 	n, over := 0, 0
 	for j := range w.pts {
 		p := &w.pts[j]
@@ -131,7 +132,7 @@ func (t *along) choose() bool {
 		n++
 	}
 	t.size(n)
-	if t.b != t.a+1 || t.from[t.b] != t.c.b {
+	if t.a < 0 || t.b != t.a+1 {
 		return false
 	}
 	if w.s.Lot != nil && t.sparse() {
@@ -240,7 +241,9 @@ func (t *along) random(j int) float64 {
 func (t *whole) toldBy(par int) float64 {
 	for f, k := range t.free {
 		if k == par {
-			return math.Sqrt(t.got.Cov(f, f))
+			if s := math.Sqrt(t.got.Cov(f, f)); s > 0 {
+				return s
+			}
 		}
 	}
 	return 0

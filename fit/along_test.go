@@ -116,3 +116,28 @@ func TestReadingsMean(t *testing.T) {
 	near(t, "slope", gm, 2, 1e-9)
 	near(t, "u of the slope", ugm, math.Hypot(0.03, 0.1), 1e-9)
 }
+
+// Behind a load resistor whose supply nobody stated, points that take most of it are
+// no points of the model: the crossing may lie among them, and the plain rules read it
+// (self-made; every pair of currents, steps and thresholds).
+func TestReadAlongWithoutSupply(t *testing.T) {
+	b := simBench{circuit: Load, rl: 10, vdd: 12}
+	for _, step := range []float64{0.03, 0.06, 0.1} {
+		for k := range 3 {
+			d := simDevice{law: smoothLaw, vt: 3 + 0.017*float64(k), beta: 2, n: 1.4, theta: 0.05}
+			c := d.sweep(randomSource(1), b, exact(), 0, 5, step, 0)
+			s := b.setup()
+			s.Vdd = nan()
+			for test := 1e-3; test < 1.15; test *= 1.07 {
+				for idle := test; idle < 1.15; idle *= 1.07 {
+					s.TestCurrent, s.IdleCurrent = test, idle
+					if r := One(c, s); r.VgsIdle.Ok() {
+						if e := r.VgsIdle.Value - d.gateFor(b, idle); math.Abs(e) > 3*r.VgsIdle.U+2e-3 && math.Abs(e) > step/2 {
+							t.Errorf("step %g, %g A: off by %.2f mV, u %.2f mV", step, idle, 1e3*e, 1e3*r.VgsIdle.U)
+						}
+					}
+				}
+			}
+		}
+	}
+}

@@ -289,9 +289,9 @@ func (t *along) read() (v, u, gm float64) {
 	}
 	t.r, t.jac = t.r[:m], t.r[m:m*(n+1)]
 	for j, k := range t.free {
-		t.at7[j] = t.p[k]
+		t.params[j] = t.p[k]
 	}
-	if !t.eval(t.at7[:n], t.r, t.jac) {
+	if !t.eval(t.params[:n], t.r, t.jac) {
 		return t.at, math.Inf(1), math.NaN()
 	}
 	gm = t.derive()

@@ -185,7 +185,7 @@ var Codes = []CodeInfo{
 		"The circuit is not known, so only constant-current values are given.",
 		"Give the circuit: load, diode or fixed."},
 	{CodeNoAccuracy,
-		"An accuracy statement is missing, so the absolute uncertainty is not known.",
+		"An accuracy statement is missing, so the uncertainty between sessions, the absolute one, or both are not known.",
 		"Give the bench file with the meters' accuracy and the tolerance of the load resistor."},
 	{CodeRangeEdge,
 		"Near the current compared some devices were read on one range of a meter and others on the next: its errors are not common to them and do not cancel.",

@@ -9,6 +9,9 @@ const (
 	// farRatio is the ratio of neighbouring currents from which interpolation is
 	// a guess (judgement).
 	farRatio = 30
+	// wellRead is the uncertainty, V, below which a reading between coarse points needs
+	// no warning (judgement: a sixth of a bin of 10 mV).
+	wellRead = 1.5e-3
 	// lostShare is the share of the distance between two points from which on a
 	// reading along the model is asked whether a polynomial knows better (judgement).
 	lostShare = 0.03
@@ -458,6 +461,9 @@ func (w *work) judgeGrid(c *crossing, iref float64) {
 	}
 	a, b := &w.pts[c.b-1], &w.pts[c.b]
 	step := b.vg - a.vg
+	if c.own.Ok && c.u < wellRead {
+		return // read along the device's own curve, and well told by its points
+	}
 	if near := math.Min(math.Abs(a.i-iref), math.Abs(b.i-iref)); near <= 0.01*iref {
 		return // a point stands there itself
 	}

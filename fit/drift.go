@@ -87,7 +87,14 @@ func Drift(sweeps []Swept, r *Result) {
 	near := true
 	for _, k := range [...]Key{KeyVgsth, KeyVgsIdle} {
 		x, y := *sweeps[up].Result.At(k), *sweeps[down].Result.At(k)
-		if math.Abs(x.Value-y.Value) >= (a.stepAt(a.sign*x.Value)+b.stepAt(b.sign*y.Value))/4 {
+		step := (a.stepAt(a.sign*x.Value) + b.stepAt(b.sign*y.Value)) / 2
+		// Read along the device's own curve a difference of more than a few uncertainties
+		// and of more than coarse points leave open is one.
+		most := math.Max(sweepsApart*rss(x.U, y.U), levelGap*step)
+		if !sweeps[up].Result.Own.Ok || !sweeps[down].Result.Own.Ok {
+			most = step / 2
+		}
+		if math.Abs(x.Value-y.Value) >= most {
 			near = false
 			continue
 		}

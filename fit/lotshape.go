@@ -48,7 +48,7 @@ func ShapeOfLot(rs []Result) (LotShape, bool) {
 	feet := map[Foot]int{}
 	for i := range rs {
 		if o := &rs[i].Own; o.Ok && !o.Sparse {
-			beta, n, theta = append(beta, o.LnBeta), append(n, o.LnN), append(theta, o.Theta)
+			beta, theta = append(beta, o.LnBeta), append(theta, o.Theta)
 			feet[o.Foot]++
 		}
 	}
@@ -58,6 +58,11 @@ func ShapeOfLot(rs []Result) (LotShape, bool) {
 	for f := range feet {
 		if feet[f] > feet[s.Foot] || feet[f] == feet[s.Foot] && f < s.Foot {
 			s.Foot = f
+		}
+	}
+	for i := range rs { // the width of a knee means something for its shape only
+		if o := &rs[i].Own; o.Ok && !o.Sparse && o.Foot == s.Foot {
+			n = append(n, o.LnN)
 		}
 	}
 	s.LnBeta, s.LnBetaSpread = middle(beta, leastLnBetaSpread)

@@ -223,6 +223,7 @@ func (w *work) extrapolated(r *Result) {
 		r.VtBy[method] = t
 		r.Vt, r.Beta, r.Theta, r.Method = t.Vt, t.Beta, t.Theta, method
 	}
+	r.Levels = w.levels()
 	if w.s.Circuit == NoCircuit {
 		w.warn(CodeNoCircuit, "The circuit is not given: constant-current values only.")
 		return
@@ -243,7 +244,6 @@ func (w *work) extrapolated(r *Result) {
 	if t, ok := w.curveThreshold(r); ok {
 		set("curve", t)
 	}
-	r.Levels = w.levels()
 }
 
 // resistiveThresholds are those of a channel that is a resistor.

@@ -103,5 +103,5 @@ func (w *work) span() Quantity {
 	if math.IsNaN(from.Vg) || math.IsNaN(to.Vg) {
 		return None()
 	}
-	return Quantity{Value: to.Vg - from.Vg, U: rss(from.U, to.U), UBetween: math.NaN(), UAbsolute: math.NaN(), N: 4}
+	return Quantity{Value: w.sign * (to.Vg - from.Vg), U: rss(from.U, to.U), UBetween: math.NaN(), UAbsolute: math.NaN(), N: 4}
 }

@@ -23,7 +23,7 @@ type transfer struct {
 	last               [parCount]float64   // the free parameters that these three belong to
 	warm               bool                // they do
 	lower, upper, at   [parCount]float64   // scratch, by free parameter
-	steps, at7         [parCount]float64
+	steps, params      [parCount]float64
 	solver             lsq.Solver
 }
 

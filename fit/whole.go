@@ -144,7 +144,7 @@ func (w *work) layWhole() (*whole, bool) {
 			return nil, false
 		}
 	}
-	t.misfit = t.got.Scale()
+	t.misfit = t.got.SSR / math.Max(1, float64(t.rows()-t.setApart()-len(t.free)))
 	return t, true
 }
 
@@ -198,6 +198,17 @@ const plainlyBetter = 0.5
 // hardlyWorse is how many times that of the shape taken the sum of squares of another
 // may be for the distance of their thresholds to count as uncertainty (judgement).
 const hardlyWorse = 5
+
+// setApart is the number of points that do not count.
+func (t *whole) setApart() int {
+	n := 0
+	for _, apart := range t.apart {
+		if apart {
+			n++
+		}
+	}
+	return n
+}
 
 // refit weighs the points anew and fits.
 func (t *whole) refit(w *work, o lsq.Options) bool {
@@ -391,7 +402,7 @@ func (t *transfer) start(resistive bool) bool {
 	if n < 3 || !(b > 0) {
 		b = 0
 		for j := 1; j < len(t.i); j++ {
-			if s := (root(t.i[j]) - root(t.i[j-1])) / (t.vg[j] - t.vg[j-1]); s > b {
+			if s := (root(t.i[j]) - root(t.i[j-1])) / (t.vg[j] - t.vg[j-1]); s > b && t.vg[j] > t.vg[j-1] {
 				b, vt = s, t.vg[j]-root(t.i[j])/s
 			}
 		}
@@ -402,6 +413,9 @@ func (t *transfer) start(resistive bool) bool {
 	t.p = [parCount]float64{parVt: vt, parBeta: math.Log(2 * b * b), parN: math.Log(1.5)}
 	if resistive {
 		v := t.vtop[len(t.vtop)-1]
+		if !(v > 0) {
+			return false
+		}
 		t.p[parVt] -= v / 2
 		t.p[parBeta] = math.Log(b / v)
 	}

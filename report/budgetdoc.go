@@ -93,15 +93,21 @@ func enters(c fit.Contribution, name func(i int) string) (list []string) {
 }
 
 type shapeDoc struct {
-	Knee         fit.Quantity `json:"knee_V"`
-	SubThreshold fit.Quantity `json:"subthreshold_slope_factor"`
-	Lambda       fit.Quantity `json:"lambda_per_V"`
-	Span         fit.Quantity `json:"gate_span_V"`
-	Misfit       number       `json:"misfit"`
+	Knee         *fit.Quantity `json:"knee_V,omitempty"` // absent, as the next three, where the curve does not show it
+	SubThreshold *fit.Quantity `json:"subthreshold_slope_factor,omitempty"`
+	Lambda       *fit.Quantity `json:"lambda_per_V,omitempty"`
+	Span         *fit.Quantity `json:"gate_span_V,omitempty"`
+	Misfit       number        `json:"misfit"`
 }
 
 func shapeDocOf(s fit.Shape) *shapeDoc {
-	return &shapeDoc{s.Knee, s.SubThreshold, s.Lambda, s.Span, number(s.Misfit)}
+	known := func(q fit.Quantity) *fit.Quantity {
+		if !q.Ok() {
+			return nil
+		}
+		return &q
+	}
+	return &shapeDoc{known(s.Knee), known(s.SubThreshold), known(s.Lambda), known(s.Span), number(s.Misfit)}
 }
 
 // shapeLines tells in words what the curve shows beside its thresholds, for a device
