@@ -131,7 +131,13 @@ func (t *along) choose() bool {
 		n++
 	}
 	t.size(n)
-	return n >= leastAlong && over >= 2 && t.b == t.a+1 && t.from[t.b] == t.c.b && w.standing() >= leastOn
+	if t.b != t.a+1 || t.from[t.b] != t.c.b {
+		return false
+	}
+	if w.s.Lot != nil && t.sparse() {
+		return n >= sparsePoints
+	}
+	return n >= leastAlong && over >= 2 && w.standing() >= leastOn
 }
 
 // crowded reports whether more than half of the supply lies across the resistor.
@@ -148,7 +154,11 @@ func (t *along) begin() bool {
 	} else {
 		t.noise, t.share = usualNoise, t.limitShare()
 	}
-	if (wh == nil || t.squeezed) && !t.start(t.w.resistive()) {
+	lot := t.w.s.Lot
+	if lot != nil && !t.sparse() {
+		lot = nil
+	}
+	if (wh == nil || t.squeezed) && !t.start(t.w.resistive()) && lot == nil {
 		return false
 	}
 	t.free = append(t.free[:0], parVt, parBeta, parN, parTheta)
@@ -167,6 +177,9 @@ func (t *along) begin() bool {
 		t.mean[parTheta], t.sd[parTheta] = t.p[parTheta], toldTheta
 	default:
 		t.mean[parTheta], t.sd[parTheta] = usualTheta, usualThetaSpread
+	}
+	if lot != nil {
+		t.lotPriors(lot)
 	}
 	if cap(t.model) < len(t.vg) {
 		t.model = make([]float64, len(t.vg), cap(t.vg))

@@ -35,6 +35,9 @@ const (
 	// the shapes is the part's own, and readings of shapes that do about equally well
 	// must all stay in view (chosen on levels 1 and 3 of the simulator).
 	temper = 4
+	// clearOfKnee is how far above the threshold, V, the shapes of the knee no longer
+	// differ: 3.5 times 2 n kT/q, where a smooth one is within 3 % of the straight line.
+	clearOfKnee = 3.5 * 2 * usualN * thermalVoltage
 	// alongPasses is how often the weights follow the fit.
 	alongPasses = 4
 	// settled is the change of the reading, V, below which the weights need not
@@ -120,9 +123,23 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	s := &t.readings
 	s.n, s.best = 0, math.Inf(1)
 	begin := t.p
-	for k := range kneeShapes {
+	shapes := kneeShapes[:]
+	lot := w.s.Lot
+	if lot != nil && t.sparse() {
+		shapes = []kneeShape{{lot.Foot, math.Exp(lot.LnN), lot.LnNSpread, 0}}
+	}
+	own := OwnShape{Sparse: t.sparse()}
+	least := math.Inf(1)
+	if t.vg[t.a]-t.p[parVt] > clearOfKnee && !t.squeezed && len(shapes) > 1 {
+		shapes = shapes[:1] // they differ below only
+	}
+	for k := range shapes {
 		t.p = begin
-		t.take(&kneeShapes[k])
+		t.take(&shapes[k])
+		if s.best < least {
+			least = s.best
+			own.Ok, own.Foot, own.LnBeta, own.LnN, own.Theta = true, t.foot, t.p[parBeta], t.p[parN], t.p[parTheta]
+		}
 	}
 	if s.n == 0 {
 		return false
@@ -134,6 +151,10 @@ func (w *work) readAlong(c *crossing, iref float64) bool {
 	}
 	c.v, c.u, c.gm, c.ugm, c.n = v, u, gm, ugm, len(t.vg)
 	c.random = s.scatter()
+	c.own = own
+	if lot != nil && own.Sparse {
+		w.warn(CodeLotShape, "Too few points near "+amps(iref)+": the median shape of the curves of "+count(lot.Devices, "device", "devices")+" of the lot helped.")
+	}
 	return true
 }
 
@@ -181,7 +202,7 @@ func (t *along) lay(rare float64) bool {
 		}
 		before := t.doubt
 		t.doubt = math.Max(1, math.Min(before*math.Sqrt(t.fits()), mostDoubt))
-		if t.doubt == before && moved < settled {
+		if t.doubt < 1.1*before && moved < settled {
 			break
 		}
 	}

@@ -216,4 +216,7 @@ func TestRecordedTemperature(t *testing.T) {
 		t.Errorf("%+v, %+v", without, with)
 	}
 	near(t, "V/K", with.C, -3.1e-3, 0.5e-3)
+	// The gate voltage of a p-channel part is negative, and comes nearer to 0.
+	c, s = budgetSetups(t)["p-channel"](5)
+	near(t, "V/K, p-channel", line(s).C, 3.1e-3, 0.5e-3)
 }

@@ -53,6 +53,7 @@ const (
 	CodeOffNotRead         = "off-not-read"    // no reading at the off voltage
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
+	CodeLotShape           = "lot-shape"        // read along the lot's median curve
 	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
 	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
 
@@ -204,6 +205,9 @@ var Codes = []CodeInfo{
 	{CodeUnlikeConditions,
 		"The values were taken under unlike conditions.",
 		"Compare only values of the same circuit, current, temperature and definition."},
+	{CodeLotShape,
+		"The device has too few points of its own there, and was read along the median shape of the lot's curves.",
+		"Take more points around the current asked for; do not trust the value to show another die."},
 	{CodeMethodNotValid,
 		"The method asked for has no value in the region that the points cover.",
 		"Leave the method to be chosen by the region, or sweep the region that the method needs."},

@@ -33,19 +33,20 @@ const (
 
 // crossing is the gate voltage at which the curve reaches a current.
 type crossing struct {
-	v       float64 // V, n-channel sign; NaN: none
-	u       float64 // V, random part, interpolation included
-	random  float64 // V, the part of u that is scatter of the readings; 0: not told apart
-	gm      float64 // S, slope of the curve there
-	ugm     float64 // S, its random uncertainty where the reading was made along the model, else NaN
-	n       int     // points it rests on
-	count   int     // upward crossings
-	lo, hi  float64 // V, first and last upward crossing
-	b       int     // index of the first point at or above the current
-	below   bool    // already above the current at the first point
-	never   bool    // never reaches it
-	coarse  bool    // points too far apart there
-	limited bool    // the current is below the floor of the counts
+	v       float64  // V, n-channel sign; NaN: none
+	u       float64  // V, random part, interpolation included
+	random  float64  // V, the part of u that is scatter of the readings; 0: not told apart
+	gm      float64  // S, slope of the curve there
+	ugm     float64  // S, its random uncertainty where the reading was made along the model, else NaN
+	own     OwnShape // what the points around it tell of the shape of the curve
+	n       int      // points it rests on
+	count   int      // upward crossings
+	lo, hi  float64  // V, first and last upward crossing
+	b       int      // index of the first point at or above the current
+	below   bool     // already above the current at the first point
+	never   bool     // never reaches it
+	coarse  bool     // points too far apart there
+	limited bool     // the current is below the floor of the counts
 }
 
 func noCrossing() crossing {

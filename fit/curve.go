@@ -61,6 +61,8 @@ type Setup struct {
 
 	Gate, Current, Load, Drain []Accuracy // by range, ascending by Top; nil: nothing known
 
+	Lot *LotShape // what the curves of the lot have in common, for a device with too few points; nil: not known
+
 	Spot        bool    // a curve of one or two points from a one-resistor jig
 	Temperature float64 // deg C, of the part; NaN: not recorded
 	Budget      bool    // keep the contributions to every uncertainty: [Quantity.Budget]

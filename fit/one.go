@@ -131,6 +131,12 @@ func (w *work) tellAccuracy() {
 func (w *work) byCurrent(r *Result) {
 	test, idle := w.gateAt(w.s.TestCurrent), w.gateAt(w.s.IdleCurrent)
 	r.Crossings = test.count
+	if r.Own = test.own; !r.Own.Ok || idle.own.Sparse && idle.own.Ok {
+		r.Own = idle.own
+	}
+	if !r.Own.Ok && w.standing() < sparseOn {
+		r.Own.Sparse = true
+	}
 	r.Vgsth = w.crossingQuantity(test, w.s.TestCurrent)
 	r.VgsIdle = w.crossingQuantity(idle, w.s.IdleCurrent)
 	r.ReadTest = w.readOn(test.b-1, test.b+1, w.s.TestCurrent, w.s.TestCurrent/test.gm)

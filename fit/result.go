@@ -98,6 +98,7 @@ type Result struct {
 	Method    string               // behind Vt: "sqrt", "linear", "ratio" or "curve"; "current" when there is no Vt
 	VtBy      map[string]Threshold // every extrapolated threshold that is valid in the region covered, by method
 	GmRising  bool                 // GmMax lies at the end of the sweep: a longer one would give more
+	Own       OwnShape             // what the points near the currents asked for tell of the shape
 	Shape     Shape                // of the curve, beside its thresholds
 	ReadTest  ReadOn               // ranges on which the readings behind Vgsth were taken
 	ReadIdle  ReadOn               // the same of VgsIdle

@@ -22,6 +22,7 @@ var unmetCells = []struct {
 		"both/level 3/load1k/6000/100 mV/10 mA":   "rms 2u",
 		"both/level 3/load1k/20000/60 mV/10 mA":   "rms",
 		"both/level 3/load1k/20000/100 mV/10 mA":  "rms",
+		"gains/level 1/load1k/6000/100 mV/1 mA":   "2u",
 		"gains/level 1/load1k/20000/100 mV/1 mA":  "median 2u",
 	}},
 	{"0.3 ohm in the source of a part of 12 A/V² is not in the model, and mobility does not stand in for it at the corner of a level-3 knee (h3d).", map[string]string{

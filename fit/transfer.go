@@ -31,8 +31,9 @@ type transfer struct {
 var parLower = [parCount]float64{math.Inf(-1), -20, -3, -0.5, -0.05, -1} // n from 0.05
 var parUpper = [parCount]float64{math.Inf(1), 12, 3, 5, 0.5, 1}          // n to 20
 
-// parSteps are steps of the parameters that no longer matter.
-var parSteps = [parCount]float64{1e-8, 1e-7, 1e-5, 1e-6, 1e-6, 1e-5}
+// parSteps are steps of the parameters that no longer matter: a tenth of a microvolt,
+// and what is as little of the others.
+var parSteps = [parCount]float64{1e-7, 1e-6, 1e-4, 1e-5, 1e-5, 1e-4}
 
 // size makes room for n points.
 func (t *transfer) size(n int) {

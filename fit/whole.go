@@ -62,7 +62,7 @@ var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
 
 // shapeOptions do for telling the shapes of the knee apart: every parameter within a
 // hundredth of its standard error of the best.
-var shapeOptions = lsq.Options{MaxEvals: 60, Cosine: 2e-3, JacobianWithTrial: true}
+var shapeOptions = lsq.Options{MaxEvals: 25, Cosine: 5e-3, JacobianWithTrial: true}
 
 // whole is the model laid through the curve, nil where there is none to be had.
 func (w *work) whole() *whole {
@@ -154,16 +154,26 @@ func (t *whole) chooseFoot(w *work) bool {
 	noise := t.noise
 	best, p, foot := math.Inf(1), t.p, SmoothFoot
 	var ssr, vt [3]float64
+	var smoothest [parCount]float64
 	for k, f := range [...]Foot{SmoothFoot, SharpFoot, KinkedFoot} {
 		t.p, t.noise, t.foot = t.begin, noise, f
-		for j := range t.slope {
-			t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
+		if k > 0 && !math.IsInf(ssr[0], 1) {
+			// From the smooth one, whose knee is narrower where the foot is sharp.
+			t.p = smoothest
+			t.p[parN] += narrower[f]
+		} else {
+			for j := range t.slope {
+				t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
+			}
 		}
 		ssr[k] = math.Inf(1)
 		if !t.refit(w, shapeOptions) {
 			continue
 		}
 		ssr[k], vt[k] = t.got.SSR, t.p[parVt]
+		if k == 0 {
+			smoothest = t.p
+		}
 		if t.got.SSR < plainlyBetter*best || math.IsInf(best, 1) {
 			best, p, foot = t.got.SSR, t.p, f
 		}
@@ -176,6 +186,10 @@ func (t *whole) chooseFoot(w *work) bool {
 	}
 	return !math.IsInf(best, 1)
 }
+
+// narrower is by how much the logarithm of n is greater with another foot where the
+// smooth one stands in for it (from fits to level 3 of the simulator).
+var narrower = [...]float64{SmoothFoot: 0, SharpFoot: 0.5, KinkedFoot: 1}
 
 // plainlyBetter is the share of the weighted sum of squares below which another
 // shape of the knee is taken (judgement).

@@ -25,7 +25,8 @@ type Sheet struct {
 	TestBasis   string  // where it came from: "part", "--at", "spot list", "default"
 	IdleCurrent float64 // A; NaN: the part has none
 
-	Budget bool // the results hold how their uncertainties come about, and that is shown
+	Shape  *fit.LotShape // of the lot's curves, which devices with too few points were read along; nil: none
+	Budget bool          // the results hold how their uncertainties come about, and that is shown
 
 	Spread  lot.Spread
 	Sorting *lot.Sorting // nil: not sorted

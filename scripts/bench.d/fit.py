@@ -12,7 +12,7 @@ the last solution. Here that is done over the 100 points at once with numpy, the
 derivatives are those of the formula (through the load line by implicit
 differentiation), and what residuals and derivatives have in common is worked out
 once. The tolerances are scipy's own (1e-8); the project stops where a further step
-would move V_T by less than 10 nV. One thread. The project's time includes finding
+would move V_T by less than 0.1 uV. One thread. The project's time includes finding
 the start values, scipy's does not.
 """
 

@@ -129,7 +129,7 @@ func setupOf(s *report.Sheet, sw *record.Sweep, digits lastDigits) fit.Setup {
 		RL:   c.RL.Float(), RLTol: c.RLTol.Float(), Vdd: c.VDD.Float(), Vds: c.VDS.Float(), Burden: burden(sw),
 		TestCurrent: s.TestCurrent, IdleCurrent: s.IdleCurrent, MaxID: s.Part.MaxID.Float(), VgsthMax: s.Part.VgsthMax.Float(),
 		Gate: accuracy(sw, "gate", record.VG, digits), Current: accuracy(sw, "current", record.ID, digits), Load: accuracy(sw, "load", record.VL, digits), Drain: accuracy(sw, "drain", record.VD, digits),
-		Spot: sw.Direction == record.Spot, Temperature: c.Temp.Float(), Budget: s.Budget,
+		Lot: s.Shape, Spot: sw.Direction == record.Spot, Temperature: c.Temp.Float(), Budget: s.Budget,
 	}
 }
 

@@ -56,7 +56,8 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	if err != nil {
 		return s, storeFailure(err)
 	}
-	if err := keepNamed(&s, o.Devices); err != nil {
+	only, err := named(&s, o.Devices)
+	if err != nil {
 		return s, err
 	}
 	s.Version, s.Codes, s.Budget = e.Version, fit.Codes, o.Budget
@@ -68,6 +69,10 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 		return s, err
 	}
 	e.detail("%s of %s fitted in %v", count(len(sweeps), "sweep"), count(len(s.Devices), "device"), time.Since(start).Round(time.Millisecond))
+	// Only now: a device is fitted the same whether it is asked for alone or not.
+	if only != nil {
+		s.Devices = slices.DeleteFunc(s.Devices, func(d report.Device) bool { return !slices.Contains(only, d.ID) })
+	}
 	s.SortedBy = sortedBy(&s)
 	known, err := history(ctx, db, &s, o.Method)
 	if err != nil {
@@ -108,21 +113,17 @@ func load(tx *store.Tx, name string) (s report.Sheet, sweeps []record.Sweep, err
 	return s, sweeps, err
 }
 
-// keepNamed leaves only the named devices in the sheet.
-func keepNamed(s *report.Sheet, names []string) error {
-	if len(names) == 0 {
-		return nil
-	}
-	var out []report.Device
+// named gives the IDs of the named devices of the sheet, nil for no names.
+func named(s *report.Sheet, names []string) ([]string, error) {
+	var ids []string
 	for _, n := range names {
 		i := slices.IndexFunc(s.Devices, func(d report.Device) bool { return d.Name == n })
 		if i < 0 {
-			return failed("gatesill lot show "+Quote(s.Lot.Name)+" lists its devices", "device %q: not in lot %q", n, s.Lot.Name)
+			return nil, failed("gatesill lot show "+Quote(s.Lot.Name)+" lists its devices", "device %q: not in lot %q", n, s.Lot.Name)
 		}
-		out = append(out, s.Devices[i])
+		ids = append(ids, s.Devices[i].ID)
 	}
-	s.Devices = out
-	return nil
+	return ids, nil
 }
 
 // placeSweeps puts every sweep under its device.
@@ -146,14 +147,41 @@ func placeSweeps(s *report.Sheet, sweeps []record.Sweep) {
 	}
 }
 
-// fitSheet fits every sweep, on all cores.
+// fitSheet fits every sweep, on all cores; and once more, along the shape of the
+// lot's curves, those of devices with too few points to tell their own.
 func fitSheet(ctx context.Context, s *report.Sheet, method string, digits lastDigits) error {
+	all := func(*report.Device) bool { return true }
+	if err := fitDevices(ctx, s, method, digits, all); err != nil {
+		return err
+	}
+	var rs []fit.Result
+	for i := range s.Devices {
+		if d := &s.Devices[i]; !d.Excluded && d.Role != record.Control {
+			for j := range d.Sweeps {
+				rs = append(rs, d.Sweeps[j].Result)
+			}
+		}
+	}
+	shape, ok := fit.ShapeOfLot(rs)
+	if !ok {
+		return nil
+	}
+	s.Shape = &shape
+	return fitDevices(ctx, s, method, digits, func(d *report.Device) bool {
+		return slices.ContainsFunc(d.Sweeps, func(sw report.Sweep) bool { return sw.Result.Own.Sparse })
+	})
+}
+
+// fitDevices fits those devices that want it.
+func fitDevices(ctx context.Context, s *report.Sheet, method string, digits lastDigits, wants func(*report.Device) bool) error {
 	var wg sync.WaitGroup
 	workers := runtime.GOMAXPROCS(0)
 	for w := range workers {
 		wg.Go(func() {
 			for i := w; i < len(s.Devices) && ctx.Err() == nil; i += workers {
-				fitDevice(s, &s.Devices[i], method, digits)
+				if d := &s.Devices[i]; wants(d) {
+					fitDevice(s, d, method, digits)
+				}
 			}
 		})
 	}
@@ -258,11 +286,20 @@ func settings(s *report.Sheet, sw *report.Sweep, method string, digits lastDigit
 		Digits    map[record.Quantity]float64 `json:"last_digits"`
 		Condition record.Condition            `json:"condition"`
 		Meters    []record.Instrument         `json:"instruments"`
-	}{method, record.Known(s.TestCurrent), record.Known(s.IdleCurrent), s.Part.Channel, s.Part.Mode, s.Part.OffVoltage, s.Part.VgsthMax, s.Part.MaxID, last, sw.Condition, sw.Instruments})
+		Shape     *fit.LotShape               `json:"lot_shape,omitempty"`
+	}{method, record.Known(s.TestCurrent), record.Known(s.IdleCurrent), s.Part.Channel, s.Part.Mode, s.Part.OffVoltage, s.Part.VgsthMax, s.Part.MaxID, last, sw.Condition, sw.Instruments, shapeUsed(s, sw)})
 	if err != nil { // only numbers and texts in it
 		panic(fmt.Sprintf("settings of a fit: %v", err))
 	}
 	return string(b)
+}
+
+// shapeUsed is the shape of the lot where a sweep was read along it.
+func shapeUsed(s *report.Sheet, sw *report.Sweep) *fit.LotShape {
+	if sw.Result.Has(fit.CodeLotShape) {
+		return s.Shape
+	}
+	return nil
 }
 
 // estimates maps every result of the sheet to the rows that are kept.
