@@ -20,17 +20,18 @@ type Cleaned struct {
 // Clean gives the points of a curve that may be used, those that may not with
 // the reason, and what is to be said of the readings.
 //
-// Points are left out when a reading is missing or over the range, when the
-// current or the gate voltage is ten times too large or small, stands still
-// while the other moves, jumps at a range change, or contradicts most of the
-// other points of a curve that can only rise. Where an ammeter and a load
-// resistor both tell the current, see [Warning] codes current-mismatch and
+// Points are left out when a reading is missing or over the range, stands still
+// while the other moves, or is not among the largest set of points that one transfer
+// curve can hold: ten times off, left over from before a change of range, or merely out
+// of line. Where an ammeter and a load resistor both tell the current, either reading
+// of a point may be the one that fits, see [Warning] codes current-mismatch and
 // prefix-lost. c is not modified.
 //
 // Source: common practice, no source; the bracket that a transfer curve must
 // keep between two of its points follows from the square law and its
 // exponential foot (Shichman and Hodges 1968; Enz, Krummenacher and Vittoz
-// 1995). Checked: TestPlantedFaults, TestCleanCurvesStayWhole.
+// 1995). Checked: TestPlantedFaults, TestGlitchedRangeChanges,
+// TestCleanCurvesStayWhole, TestFalseAlarms.
 func Clean(c Curve, s Setup) (Cleaned, []LeftOut, []Warning) {
 	w := newWork(c, s)
 	w.settleCurrents()

@@ -48,7 +48,8 @@ func (w *work) oscillates() (hopeless bool) {
 			w.warn(CodeOscillation, text+": the part oscillates, a contact is loose, or readings were taken before they stood still.")
 		}
 	}
-	return w.odd >= 3 && 5*w.odd > 2*all
+	// What is left must hold together.
+	return w.odd >= 3 && 5*w.odd > 2*all || w.unsettled >= 3 && 4*w.unsettled > len(w.pts)
 }
 
 // wild is the scatter of single points about the curve, V, where that is far more

@@ -77,7 +77,7 @@ func (w *work) dropFaults() {
 	var out []point
 	for range mostRounds {
 		w.limit = 0
-		if w.sound() {
+		if w.unsettled = w.breaches(); w.unsettled == 0 && !slices.ContainsFunc(w.pts, func(p point) bool { return p.disputed }) {
 			break
 		}
 		w.jump()
@@ -96,7 +96,7 @@ func (w *work) dropFaults() {
 			pts = append(pts, p)
 		}
 		if len(pts) == len(w.pts) {
-			break
+			break // what breaches are left, the rest must bear
 		}
 		w.pts = pts // without them the scatter may be less
 	}
@@ -114,24 +114,20 @@ func (w *work) dropFaults() {
 	}
 }
 
-// sound reports whether every point lies in the bracket of its neighbours and
-// none is disputed.
-func (w *work) sound() bool {
+// breaches counts the points that fall or lie outside the bracket of their
+// neighbours.
+func (w *work) breaches() (n int) {
 	var before *point
 	for j := range w.pts {
 		b := &w.pts[j]
-		if b.disputed || j > 0 && w.contradicts(&w.pts[j-1], b) {
-			return false
+		if j > 0 && (w.contradicts(&w.pts[j-1], b) || j+1 < len(w.pts) && w.breachOf(before, &w.pts[j-1], b, &w.pts[j+1]) != 0) {
+			n++
 		}
-		if j == 0 || j+1 == len(w.pts) {
-			continue
+		if j > 0 {
+			before = &w.pts[j-1]
 		}
-		if w.breachOf(before, &w.pts[j-1], b, &w.pts[j+1]) != 0 {
-			return false
-		}
-		before = &w.pts[j-1]
 	}
-	return true
+	return n
 }
 
 // dropNeither leaves out, of few points, those with two readings neither of which

@@ -31,13 +31,14 @@ type work struct {
 	vddRead bool    // V_DD was read point by point
 	least   float64 // V, lower bound of the supply from the greatest V_L; NaN
 
-	ties    bool    // several points share a gate reading: its display is coarse against the steps
-	base    float64 // A, smallest current of the curve if above zero: leakage
-	tiny    float64 // A, current below which no spikes are looked for
-	falling bool    // the current falls as the gate is driven harder
-	odd     int     // points left out that contradict a rising curve without a sign of a leftover
-	jumps   string  // where the current jumps at constant gate voltage, a sentence
-	limit   float64 // V, least displacement of a point that is called a fault; 0: not yet known
+	ties      bool    // several points share a gate reading: its display is coarse against the steps
+	base      float64 // A, smallest current of the curve if above zero: leakage
+	tiny      float64 // A, current below which no spikes are looked for
+	falling   bool    // the current falls as the gate is driven harder
+	odd       int     // points left out that contradict a rising curve without a sign of a leftover
+	unsettled int     // points kept that the others contradict
+	jumps     string  // where the current jumps at constant gate voltage, a sentence
+	limit     float64 // V, least displacement of a point that is called a fault; 0: not yet known
 
 	pts       []point      // usable points in the order in which the part turns on
 	grid      float64      // V, step that the digits of the gate readings show; 0: none
