@@ -153,7 +153,7 @@ var Codes = []CodeInfo{
 		"Take a sweep when the shape of the curve or other currents matter."},
 	{CodeBenchLimited,
 		"The meters cannot resolve this number.",
-		"Use a finer range, or a current of more counts."},
+		"Use a finer range or a current of more counts, or state what the sentence names."},
 	{CodeNTooSmall,
 		"There are too few devices for this statement.",
 		"Measure more devices."},

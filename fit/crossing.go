@@ -137,6 +137,9 @@ func (w *work) gateAt(iref float64) crossing {
 		}
 	case !along || plain.u < c.u/2:
 		plain.own = c.own
+		if along {
+			plain.gm, plain.ugm = c.gm, c.ugm // of a slope the model knows better still
+		}
 		c = plain
 	}
 	w.judgeGrid(&c, iref)

@@ -235,7 +235,7 @@ func (w *work) extrapolated(r *Result) {
 	}
 	if small && !never {
 		w.resistiveThresholds(set)
-	} else if root {
+	} else if root && w.leavesKnee() {
 		if t, ok := w.squareRoot(); ok {
 			t.Theta = None()
 			set("sqrt", t)

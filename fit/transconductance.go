@@ -329,6 +329,12 @@ func (w *work) transconductances(r *Result, idle crossing) {
 	if math.IsNaN(idle.v) {
 		return
 	}
+	// The greatest is nowhere less than at the idle current.
+	defer func() {
+		if r.GmIdle.Ok() && !(math.Abs(r.GmMax.Value) >= math.Abs(r.GmIdle.Value)) {
+			r.GmMax = r.GmIdle
+		}
+	}()
 	if idle.gm > 0 && idle.ugm > 0 {
 		r.GmIdle = w.gainQuantity(idle.gm, idle.ugm, idle.n, math.Inf(1), w.s.IdleCurrent, w.slopeFollows())
 		return

@@ -20,11 +20,8 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	if t == nil {
 		return Threshold{}, false
 	}
-	if top := t.overdrive(); top < leastOverdrive {
-		if len(r.VtBy) == 0 && !w.warned(CodeSubThresholdOnly) && !w.warned(CodeNotSaturated) {
-			w.warn(CodeSubThresholdOnly, "The points end "+si(top, "V")+" above the threshold, within the knee: no extrapolated threshold.")
-		}
-		return Threshold{}, false
+	if !w.leavesKnee() {
+		return Threshold{}, false // said already
 	}
 	if why := t.doesNotFit(w); why != "" {
 		w.warn(CodeModelMisfit, why)
@@ -59,6 +56,25 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	}
 	r.Shape = w.shapeOf(t)
 	return out, true
+}
+
+// leavesKnee reports whether the points reach far enough above the threshold for any
+// extrapolation, as far as the fitted curve tells: at least twice the width of the
+// knee. Else it warns sub-threshold-only. In the knee the root of the current is nearly
+// straight as well, and its line meets zero far too low.
+func (w *work) leavesKnee() bool {
+	t := w.whole()
+	if t == nil {
+		return true
+	}
+	top, knee := t.overdrive(), 2*math.Exp(t.p[parN])*thermalVoltage
+	if top >= math.Max(leastOverdrive, 2*knee) {
+		return true
+	}
+	if !w.warned(CodeSubThresholdOnly) && !w.warned(CodeNotSaturated) {
+		w.warn(CodeSubThresholdOnly, "The points end "+si(top, "V")+" above the threshold, within the knee: no extrapolated threshold.")
+	}
+	return false
 }
 
 // leastOverdrive is how far above the threshold, V, the points must reach for the

@@ -47,7 +47,7 @@ func FitTable(w io.Writer, s Sheet, style Style) error {
 	p.line("")
 	dropped := p.grid(fitGrid(s, style))
 	p.line("")
-	wrapped(p, "", "  ", "± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on.", style.Width)
+	wrapped(p, "", "  ", "± is one standard uncertainty within the session (k = 1); n is the number of points a value rests on. What the equation or line behind V_T, beta and theta is itself wrong by is in the absolute uncertainty only (--budget, --json).", style.Width)
 	leakage := KeyOf(fit.KeyIdss).Symbol
 	if i := slices.Index(dropped, leakage); i >= 0 {
 		dropped[i] = SymbolWords(fit.KeyIdss)

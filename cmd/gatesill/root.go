@@ -55,7 +55,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	}
 	root.SetVersionTemplate("gatesill {{.Version}}\n")
 	root.SetFlagErrorFunc(func(cmd *cobra.Command, err error) error {
-		return job.Usage(strings.TrimSpace("gatesill help "+strings.TrimPrefix(cmd.CommandPath(), "gatesill")), "%w", err)
+		return job.Usage(strings.TrimSpace("gatesill help "+strings.TrimPrefix(cmd.CommandPath(), "gatesill ")), "%w", err)
 	})
 	p := root.PersistentFlags()
 	p.StringVar(&env.Store, "store", os.Getenv("GATESILL_STORE"), "the store's `PATH` (default: GATESILL_STORE, else the user's data folder)")

@@ -39,6 +39,9 @@ const defaultTestCurrent = 1e-3
 // estimates, and lays everything out for the reports.
 func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sheet, error) {
 	var s report.Sheet
+	if o.At.IsKnown() && !(o.At.Float() != 0) {
+		return s, Usage("for instance --at 250uA", "--at: a current of %v A is none to look for", o.At.Float())
+	}
 	db, err := e.open(ctx, false, o.ReadOnly)
 	if errors.Is(err, store.ErrReadOnly) && !o.ReadOnly {
 		db, err = e.open(ctx, false, true)
@@ -157,9 +160,7 @@ func fitSheet(ctx context.Context, s *report.Sheet, method string, digits lastDi
 	var rs []fit.Result
 	for i := range s.Devices {
 		if d := &s.Devices[i]; !d.Excluded && d.Role != record.Control {
-			for j := range d.Sweeps {
-				rs = append(rs, d.Sweeps[j].Result)
-			}
+			rs = append(rs, d.Result)
 		}
 	}
 	shape, ok := fit.ShapeOfLot(rs)
