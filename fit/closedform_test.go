@@ -150,13 +150,15 @@ func TestManyCrossings(t *testing.T) {
 	near(t, "V_GS", r.Vgsth.Value, d.gateFor(b, 100e-3), 3*r.Vgsth.U)
 }
 
+// Points are called coarse where that hurts: at 50 mV the device's own curve tells the
+// gate voltage well.
 func TestCoarseGridIsSaid(t *testing.T) {
 	d := simDevice{law: smoothLaw, vt: 3, beta: 2, n: 1.4}
 	b := simBench{circuit: Diode}
 	for _, c := range []struct {
 		step, i float64
 		coarse  bool
-	}{{0.25, 1e-3, true}, {0.05, 1e-3, false}, {0.01, 1e-3, false}, {0.05, 200e-3, false}} // at 50 mV the device's own curve tells it {
+	}{{0.25, 1e-3, true}, {0.05, 1e-3, false}, {0.01, 1e-3, false}, {0.05, 200e-3, false}} {
 		x := d.sweep(randomSource(1), b, exact(), 2.33, 4, c.step, 0)
 		s := b.setup()
 		s.TestCurrent = c.i
