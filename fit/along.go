@@ -90,7 +90,6 @@ type along struct {
 	left     spreading
 	place    [2 * krigeSide]int // points that the residuals in left belong to
 	by       [parCount]float64  // V by free parameter: the reading's derivatives
-	r, jac   []float64
 }
 
 // choose takes the points around the crossing: those with currents near the one

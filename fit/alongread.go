@@ -53,7 +53,7 @@ const (
 
 // alongOptions stop a fit when every parameter is within a hundredth of its standard
 // error of the best.
-var alongOptions = lsq.Options{MaxEvals: 40, Cosine: 2e-3, JacobianWithTrial: true}
+var alongOptions = lsq.Options{MaxEvals: 40, Cosine: 2e-3}
 
 // readings are those of one crossing by different models.
 type readings struct {
@@ -284,10 +284,7 @@ func (t *along) fits() float64 { return (t.got.SSR + 2) / (t.spare() + 2) }
 // latter is scaled by how well the model describes these very points.
 func (t *along) read() (v, u, gm float64) {
 	m, n := t.rows(), len(t.free)
-	if cap(t.r) < m*(n+1) {
-		t.r = make([]float64, (m+8)*(parCount+1))
-	}
-	t.r, t.jac = t.r[:m], t.r[m:m*(n+1)]
+	t.room(m, n)
 	for j, k := range t.free {
 		t.params[j] = t.p[k]
 	}

@@ -1,6 +1,9 @@
 package fit
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 const (
 	// usualWorth is how many points the usual scatter is worth beside those seen.
@@ -20,10 +23,7 @@ type standout struct{ square, known, gate, share float64 }
 
 // standouts finds them in what the model laid through the whole curve leaves over.
 func (w *work) standouts(t *whole) []standout {
-	top := 0.0
-	for _, i := range t.i {
-		top = math.Max(top, i)
-	}
+	top := slices.Max(t.i)
 	first := 0
 	for first < len(t.i) && t.i[first] < scatterShare*top {
 		first++

@@ -51,8 +51,9 @@ type Swept struct {
 // both sides of the point without a temperature coefficient, always is.
 //
 // Where the curves agree, or are too short to tell, heating is taken back, and so is
-// sweeps-disagree, if the gate voltages in question differ by less than half of the
-// steps around them: that is interpolation.
+// sweeps-disagree, if the gate voltages in question differ by no more than their
+// uncertainties and coarse points leave open: that is interpolation. Where they were
+// not read along the device's own curve that is half of the steps around them.
 //
 // Cannot be told apart: a heat sink that warms up over the whole sweep, and a
 // charge of the same sign that builds up over it.

@@ -31,12 +31,12 @@ const (
 	plateau  = 0.9
 )
 
-// shapeOf is what the whole-curve fit t tells beside its thresholds.
-func (w *work) shapeOf(t *whole) Shape {
+// shapeOf is what the whole-curve fit t tells beside its thresholds; random is the
+// standard deviation of each free parameter by the scatter of the points.
+func (w *work) shapeOf(t *whole, random [parCount]float64) Shape {
 	s := NoShape()
 	s.Misfit = t.misfit
 	n := len(t.vg)
-	random, _, _ := t.spread(w)
 	a := 2 * math.Exp(t.p[parN]) * thermalVoltage
 	s.Knee = Quantity{Value: a, U: a * random[2], UBetween: math.NaN(), UAbsolute: math.NaN(), N: n}
 	if k := slices.Index(t.free, parLambda); k >= 0 {

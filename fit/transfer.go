@@ -24,6 +24,7 @@ type transfer struct {
 	warm               bool                // they do
 	lower, upper, at   [parCount]float64   // scratch, by free parameter
 	steps, params      [parCount]float64
+	r, jac             []float64 // scratch: residuals and derivatives, see room
 	solver             lsq.Solver
 }
 
@@ -110,6 +111,14 @@ func (t *transfer) eval(x, r, jac []float64) bool {
 	return true
 }
 
+// room makes scratch for m residuals and their derivatives by n parameters.
+func (t *transfer) room(m, n int) {
+	if cap(t.r) < m*(n+1) {
+		t.r = make([]float64, (m+8)*(parCount+1))
+	}
+	t.r, t.jac = t.r[:m], t.r[m:m*(n+1)]
+}
+
 // rows is the number of residuals.
 func (t *transfer) rows() int {
 	m := len(t.vg)
@@ -121,7 +130,8 @@ func (t *transfer) rows() int {
 	return m
 }
 
-// fit finds the parameters from those in t.p, which it replaces.
+// fit finds the parameters from those in t.p, which it replaces. Residuals and
+// derivatives share most of their work, so both are had at every trial.
 func (t *transfer) fit(o lsq.Options) lsq.Fit {
 	for j := range t.solved {
 		t.solved[j] = t.i[j]

@@ -14,9 +14,8 @@ type whole struct {
 	noise   float64           // V, scatter of points about the curve, beyond what is stated of them
 	apart   []bool            // points so far off the curve that they do not count
 	begin   [parCount]float64 // the parameters to start from
-	r, jac  []float64
-	between float64 // V, by how much the threshold differs with other shapes of the knee that do nearly as well
-	misfit  float64 // reduced χ², floors included, of the points that count
+	between float64           // V, by how much the threshold differs with other shapes of the knee that do nearly as well
+	misfit  float64           // reduced χ², floors included, of the points that count
 	got     lsq.Fit
 }
 
@@ -58,11 +57,11 @@ const (
 )
 
 // wholeOptions stop a fit when a further step would not matter (parSteps).
-var wholeOptions = lsq.Options{MaxEvals: 200, JacobianWithTrial: true}
+var wholeOptions = lsq.Options{MaxEvals: 200}
 
 // shapeOptions do for telling the shapes of the knee apart: every parameter within a
 // hundredth of its standard error of the best.
-var shapeOptions = lsq.Options{MaxEvals: 25, Cosine: 5e-3, JacobianWithTrial: true}
+var shapeOptions = lsq.Options{MaxEvals: 25, Cosine: 5e-3}
 
 // whole is the model laid through the curve, nil where there is none to be had.
 func (w *work) whole() *whole {
@@ -89,8 +88,7 @@ func (w *work) whole() *whole {
 //
 // Source: equation, see [Model]; V_T by whole-curve fits in all regions, A.
 // Ortiz-Conde et al., Microelectronics Reliability 42 (2002) 583–596 (section from
-// memory); leaving out by multiples of the median absolute residual, common
-// practice. Checked: TestWholeCurve, TestOutsideThresholds, TestOneBadPoint.
+// memory); points left out, see farOff. Checked: TestWholeCurve, TestOutsideThresholds, TestOneBadPoint.
 func (w *work) layWhole() (*whole, bool) {
 	t := &whole{}
 	if w.s.Circuit == NoCircuit || !t.choose(w, math.NaN()) || !t.start(w.resistive()) {
@@ -113,7 +111,7 @@ func (w *work) layWhole() (*whole, bool) {
 	t.mean[parTheta], t.sd[parTheta] = usualTheta, weakTheta
 	if w.s.Circuit == Load && t.f.drain > 0 && strong >= 2*leastStrong {
 		t.free = append(t.free, parLambda)
-		t.mean[parLambda], t.sd[parLambda] = 0.01, weakLambda
+		t.mean[parLambda], t.sd[parLambda] = usualLambda, weakLambda
 	}
 	for j := range t.slope {
 		t.slope[j], t.solved[j] = secant(t.vg, t.i, j), t.i[j]
@@ -232,12 +230,7 @@ func (t *whole) farOff() int {
 	if !t.eval(t.got.P, t.r, t.jac) {
 		return -1
 	}
-	free := float64(-n - 1)
-	for j := range t.apart {
-		if !t.apart[j] {
-			free++
-		}
-	}
+	free := float64(len(t.vg) - t.setApart() - n - 1)
 	if free < 1 {
 		return -1
 	}
@@ -270,14 +263,6 @@ func (t *whole) residual(j int) float64 {
 		s /= noWeight
 	}
 	return (t.solved[j] - t.i[j]) / s
-}
-
-// room makes scratch for residuals and derivatives.
-func (t *whole) room(m, n int) {
-	if cap(t.r) < m*(n+1) {
-		t.r = make([]float64, (m+8)*(n+2))
-	}
-	t.r, t.jac = t.r[:m], t.r[m:m*(n+1)]
 }
 
 // noWeight is the factor to sigma that takes a point out of a fit.

@@ -23,7 +23,7 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	if !w.leavesKnee() {
 		return Threshold{}, false // said already
 	}
-	if why := t.doesNotFit(w); why != "" {
+	if why := t.doesNotFit(); why != "" {
 		w.warn(CodeModelMisfit, why)
 		return Threshold{}, false
 	}
@@ -54,7 +54,7 @@ func (w *work) curveThreshold(r *Result) (Threshold, bool) {
 	if !(random[3] > 0) { // at its bound: nothing is known of it
 		out.Theta = None()
 	}
-	r.Shape = w.shapeOf(t)
+	r.Shape = w.shapeOf(t, random)
 	return out, true
 }
 
@@ -110,7 +110,7 @@ func (t *whole) middle() int {
 
 // doesNotFit says in what way the model does not describe the curve, "" where it
 // does.
-func (t *whole) doesNotFit(w *work) string {
+func (t *whole) doesNotFit() string {
 	switch {
 	case t.misfit > plainMisfit:
 		return "The points lie " + number(math.Sqrt(t.misfit)) + " times as far off the fitted curve as they may (" + t.farthest() + "): no threshold by it."

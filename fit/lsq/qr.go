@@ -31,6 +31,17 @@ func add(c float64, a, b []float64) {
 // Jacobian is taken to lie in their space: what rounding alone makes of zero.
 func dependent(m, n int) float64 { return 10 * epsilon * float64(max(m, n)) }
 
+// mirror gives the Householder reflection that turns a column of length h with first
+// entry x on to the first axis: what becomes of that entry, the first entry of the
+// reflection's vector (the others are the column's own), and the factor of it.
+func mirror(x, h float64) (onto, first, factor float64) {
+	factor = -1 / (h * (h + math.Abs(x)))
+	if x > 0 {
+		return -h, x + h, factor
+	}
+	return h, x - h, factor
+}
+
 // factor takes the free columns of the Jacobian apart, J = QR, by Householder
 // reflections, and turns the residuals along. Both are used up. It leaves R in
 // s.r (nf by nf, column by column) and Qᵀr in s.qtr, in the order of s.free, in
@@ -52,15 +63,8 @@ func (s *Solver) factor(m int) {
 			continue
 		}
 		rank++
-		x := v[0]
-		if x > 0 {
-			s.diag[k] = -h
-			v[0] = x + h
-		} else {
-			s.diag[k] = h
-			v[0] = x - h
-		}
-		b := -1 / (h * (h + math.Abs(x)))
+		var b float64
+		s.diag[k], v[0], b = mirror(v[0], h)
 		for _, i := range s.free[k+1:] {
 			c := s.jac[i*m+k : (i+1)*m]
 			add(b*dot(v, c), v, c)
@@ -124,15 +128,8 @@ func (s *Solver) damped(mu float64, rhs []float64) bool {
 		if h == 0 {
 			return false
 		}
-		x := t[0]
-		if x > 0 {
-			s.diag[c] = -h
-			t[0] = x + h
-		} else {
-			s.diag[c] = h
-			t[0] = x - h
-		}
-		f := -1 / (h * (h + math.Abs(x)))
+		var f float64
+		s.diag[c], t[0], f = mirror(t[0], h)
 		for e := c + 1; e < n; e++ {
 			reflect(f, t, b, s.top[e*nf+c:e*nf+k+1], low[e*n:e*n+c+1])
 		}
