@@ -64,16 +64,17 @@ func (tx *Tx) SealSweep(s *record.Sweep) error {
 }
 
 // StartedSweeps lists the sweeps that were never sealed, without data: those
-// being measured, and those that a crash cut short.
+// being measured, and those that a crash cut short. One that was excluded
+// ([Tx.ExcludeSweep]) was given up and is not listed.
 func (tx *Tx) StartedSweeps() ([]record.Sweep, error) {
-	return tx.sweeps("started sweeps", false, started)
+	return tx.sweeps("started sweeps", false, started+` AND sweep.excluded = 0`)
 }
 
 // AddReadings adds readings in the order of their arrival; those of one sweep
 // continue where the ones before ended.
 func (tx *Tx) AddReadings(rs []record.Reading) error {
-	insert, err := tx.sql.PrepareContext(tx.ctx, `INSERT INTO reading (sweep_id, n, role, meter, at_s, value, unit, state, raw)
-		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?)`)
+	insert, err := tx.sql.PrepareContext(tx.ctx, `INSERT INTO reading (sweep_id, n, role, meter, at_s, value, unit, state, raw, digit, refused)
+		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`)
 	if err != nil {
 		return tx.fail("readings", err)
 	}
@@ -94,7 +95,7 @@ func (tx *Tx) AddReadings(rs []record.Reading) error {
 			}
 		}
 		last[r.SweepID] = n + 1
-		if _, err := insert.ExecContext(tx.ctx, r.SweepID, n+1, r.Role, r.Meter, r.At, r.Value, r.Unit, string(r.State), r.Raw); err != nil {
+		if _, err := insert.ExecContext(tx.ctx, r.SweepID, n+1, r.Role, r.Meter, r.At, r.Value, r.Unit, string(r.State), r.Raw, r.Digit, r.Refused); err != nil {
 			return tx.fail("reading of "+r.Meter, err)
 		}
 	}
@@ -104,7 +105,27 @@ func (tx *Tx) AddReadings(rs []record.Reading) error {
 // Readings lists the readings of a sweep in the order of their arrival.
 func (tx *Tx) Readings(sweepID string) ([]record.Reading, error) {
 	return all(tx, "readings of sweep "+sweepID, func(from row) (r record.Reading, err error) {
-		err = from.Scan(&r.SweepID, &r.Role, &r.Meter, &r.At, &r.Value, &r.Unit, &r.State, &r.Raw)
+		err = from.Scan(&r.SweepID, &r.Role, &r.Meter, &r.At, &r.Value, &r.Unit, &r.State, &r.Raw, &r.Digit, &r.Refused)
 		return r, err
-	}, `SELECT sweep_id, role, meter, at_s, value, unit, state, raw FROM reading WHERE sweep_id = ? ORDER BY n`, sweepID)
+	}, `SELECT sweep_id, role, meter, at_s, value, unit, state, raw, digit, refused FROM reading WHERE sweep_id = ? ORDER BY n`, sweepID)
+}
+
+// AddEvents keeps what happened in a session, in the order given.
+func (tx *Tx) AddEvents(es []record.Event) error {
+	for i := range es {
+		e := &es[i]
+		if err := tx.exec("event of session "+e.SessionID, `INSERT INTO event (session_id, sweep_id, at_s, kind, text) VALUES (?, ?, ?, ?, ?)`,
+			e.SessionID, orNull(e.SweepID), e.At, e.Kind, e.Text); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// Events lists what happened in a session, in the order in which it was added.
+func (tx *Tx) Events(sessionID string) ([]record.Event, error) {
+	return all(tx, "events of session "+sessionID, func(from row) (e record.Event, err error) {
+		err = from.Scan(&e.SessionID, maybe{&e.SweepID}, &e.At, &e.Kind, &e.Text)
+		return e, err
+	}, `SELECT session_id, sweep_id, at_s, kind, text FROM event WHERE session_id = ? ORDER BY rowid`, sessionID)
 }

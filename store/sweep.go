@@ -15,11 +15,12 @@ import (
 const (
 	conditionColumns = `circuit, rl_ohm, rl_tol, rl_rating_w, vdd_nominal_v, vds_nominal_v, ammeter, burden_ohm, gate_return, ` +
 		`pulsed, pulse_width_s, pulse_duty, pulse_delay_s, dwell_s, temp_nominal_c, temp_of, spot_current_a`
-	dataColumns = `vg_v, id_a, vl_v, vd_v, vdd_v, ig_a, gm_s, temp_c, t_s`
+	dataColumns = `vg_v, id_a, vl_v, vd_v, vdd_v, ig_a, gm_s, temp_c, t_s, pair_bound_v, settled`
 
 	insertSweep = `INSERT INTO sweep (id, device_id, session_id, source_id, position, direction, measured_at, excluded, why, ` +
 		conditionColumns + `, instruments_id, data_hash, points, source_lines, marks, ` + dataColumns + `)
-		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?,  ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?,  ?, ?, ?, ?, ?,  ?, ?, ?, ?, ?, ?, ?, ?, ?)`
+		VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?,  ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?,  ` +
+		`?, ?, ?, ?, ?,  ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)`
 )
 
 // AddSweeps adds whole sweeps and fills ID, LotID, DataHash, Points, and the
@@ -160,7 +161,7 @@ func (a *sweepAdder) values(s *record.Sweep) ([]any, error) {
 	if err != nil {
 		return nil, err
 	}
-	values := make([]any, 0, 40)
+	values := make([]any, 0, 42)
 	values = append(values, s.ID, s.DeviceID, orNull(s.SessionID), orNull(s.SourceID), s.Position, string(s.Direction),
 		orNull(s.MeasuredAt), s.Excluded, s.Why)
 	values = append(values, conditionValues(&s.Condition)...)

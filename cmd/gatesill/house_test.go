@@ -12,21 +12,23 @@ import (
 // subpackages' siblings only where that is listed. The data flows one way:
 // acquire -> store -> fit -> report.
 var mayImport = map[string][]string{
-	"store/record":     {},
-	"store":            {"store/record"},
-	"acquire":          {"store/record", "acquire/"},
-	"fit":              {"fit/lsq", "fit/stats"},
-	"fit/lsq":          {},
-	"fit/stats":        {},
-	"fit/lot":          {"fit", "fit/stats"},
-	"fit/match":        {"fit", "fit/stats"},
-	"report":           {"store/record", "fit", "fit/lot", "fit/match"},
-	"report/internal":  {"store/record", "fit", "fit/lot", "fit/match", "report"}, // invented sheets for tests
-	"report/svg":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/internal/"},
-	"report/page":      {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
-	"report/live":      {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
-	"cmd/internal/job": {"store", "acquire", "acquire/", "fit", "fit/", "report", "report/", "store/record"},
-	"cmd/gatesill":     {"cmd/internal/job", "store/record", "acquire/table", "report"},
+	"store/record":      {},
+	"store":             {"store/record"},
+	"acquire":           {"store/record", "acquire/"},
+	"acquire/rehearsal": {"store/record", "acquire/", "fit"}, // fit: the device equation
+	"fit":               {"fit/lsq", "fit/stats"},
+	"fit/lsq":           {},
+	"fit/stats":         {},
+	"fit/lot":           {"fit", "fit/stats"},
+	"fit/match":         {"fit", "fit/stats"},
+	"report":            {"store/record", "fit", "fit/lot", "fit/match"},
+	"report/screen":     {"store/record", "report"},                                // the terminal view of a live bench
+	"report/internal":   {"store/record", "fit", "fit/lot", "fit/match", "report"}, // invented sheets for tests
+	"report/svg":        {"store/record", "fit", "fit/lot", "fit/match", "report", "report/internal/"},
+	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
+	"report/live":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
+	"cmd/internal/job":  {"store", "acquire", "acquire/", "fit", "fit/", "report", "report/", "store/record"},
+	"cmd/gatesill":      {"cmd/internal/job", "store/record", "acquire/table", "report"},
 }
 
 // onlyImporter names, for each module that one package alone may import, that

@@ -16,15 +16,18 @@ const (
 	GM   Quantity = "gm_s"   // transconductance, as given in a spot list
 	Temp Quantity = "temp_c" // temperature
 	T    Quantity = "t_s"    // elapsed time
+
+	PairBound Quantity = "pair_bound_v" // greatest error of the gate voltage from pairing meters that do not read at one instant
+	Settled   Quantity = "settled"      // 1: a mean while all stood still, 0: interpolated between readings
 )
 
 // Quantities lists all quantities in their order.
-var Quantities = []Quantity{VG, ID, VL, VD, VDD, IG, GM, Temp, T}
+var Quantities = []Quantity{VG, ID, VL, VD, VDD, IG, GM, Temp, T, PairBound, Settled}
 
 // Unit gives the SI unit symbol of the quantity.
 func (q Quantity) Unit() string {
 	switch q {
-	case VG, VL, VD, VDD:
+	case VG, VL, VD, VDD, PairBound:
 		return "V"
 	case ID, IG:
 		return "A"
@@ -222,11 +225,23 @@ type Reading struct {
 	SweepID string
 	Role    string // as of [Instrument]
 	Meter   string
-	At      float64 // s, elapsed in the session
+	At      float64 // s, elapsed in the session: when the first byte of the frame came
 	Value   Num     // SI unit
 	Unit    string
 	State   PointState // "" when Value is a number
 	Raw     []byte     // the frame as it arrived
+	Digit   Num        // one count of the display, SI unit
+	Refused string     // why it cannot stand for the quantity (held, relative, wrong unit ...), "" when it can
+}
+
+// Event is what happened in a session besides readings: a line lost, a zero
+// taken, a limit reached, the off state seen.
+type Event struct {
+	SessionID string
+	SweepID   string  // "" when it was not in a sweep
+	At        float64 // s, elapsed in the session
+	Kind      string  // one word: "lost", "zero", "limit", "off", "note" ...
+	Text      string  // for people; JSON where Kind says so
 }
 
 // Value is one estimated quantity with its three standard uncertainties
