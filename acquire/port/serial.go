@@ -1,0 +1,5 @@
+package port
+
+import (
+	_ "go.bug.st/serial" // serial lines
+)
