@@ -87,22 +87,55 @@ type Bench struct {
 	Given  record.Condition // circuit as far as the file states it
 	Limits Limits
 	Meters []record.Instrument
-	Lines  []Line // one a meter, same order
+	Lines  []Line     // one a meter, same order
+	Bleed  record.Num // ohm from gate to source, fitted for good; unknown: none declared
+
+	Supplies []Supply // at most one that drives the gate, one the drain
 }
 
 // Limits are the greatest values allowed on the bench, unknown where not given.
 type Limits struct {
-	Vgs record.Num // V
-	Vds record.Num // V
-	ID  record.Num // A
-	PD  record.Num // W
+	Vgs  record.Num // V
+	Vds  record.Num // V
+	ID   record.Num // A
+	PD   record.Num // W
+	Temp record.Num // deg C
 }
 
-// Line is where a meter's readings come in.
+// Line is where a meter's readings come in and how it is spoken to. Meters with
+// the same Path share one line: each is a column of what comes in on it, and
+// what only one of them states holds for all.
 type Line struct {
-	Path     string // stable by-id or by-path name, or host:port
-	Speaks   string // frame format
-	Settings string // "2400 8N1"
+	Path      string   // stable by-id or by-path name, or host:port; "" no live readings
+	Speaks    string   // name of the format of its frames or replies
+	Settings  string   // "2400 8N1"; "" as usual for the format
+	Column    int      // of a line or reply with several values, from 1
+	Unit      string   // unit of a column that names none: "mV"; "" says its unit itself
+	Separator string   // between columns; "" any usual one
+	Decimal   string   // "point", "comma"; "" point
+	Ask       string   // what is sent for a reading; "" as usual for the format
+	Setup     []string // sent once after opening, in this order
+
+	Every       record.Num // s between two questions
+	Integration record.Num // s over which it measures
+	Processing  record.Num // s from the end of integration to the first byte
+	LagU        record.Num // s, greatest error of the two
+}
+
+// Supply is a supply output that the program may drive.
+type Supply struct {
+	Drives       string // "gate" or "drain"
+	Name         string
+	Path         string // line, as of [Line]
+	Settings     string
+	Output       int               // number of its output; 0: it has only one
+	CurrentLimit record.Num        // A, to be set; unknown: left as it is
+	Voltage      record.Num        // V, of a drain supply when it is on; always known there
+	Isolated     *bool             // nil: not said
+	Swapped      bool              // its leads are swapped: a gate voltage of -3 V is a setting of 3 V
+	Commands     map[string]string // templates of commands that differ from the standard's, by name
+	Calibrated   string            // date, YYYY-MM-DD; "" not said
+	Due          string            // date, YYYY-MM-DD; "" not said
 }
 
 // file mirrors the TOML keys. Numbers may be written bare (SI base unit) or as
