@@ -78,7 +78,7 @@ func TestRefused(t *testing.T) {
 func TestPlaces(t *testing.T) {
 	for _, c := range []struct{ text, want string }{
 		{"[[meter]]\nrole = 'gate'\n\n[[meter]]\nrole = 'current'\n  [[meter.range]]\n  top = 1\n\tburden = '3 V'\n", `8: column 2: meter 2 (current): range 1: burden: `},
-		{"[[meter]]\nrole = 'gate'\nµ = 1\n", "3: column 1: unknown key"},
+		{"[[meter]]\nrole = 'gate'\nµ = 1\n", "3: column 1: invalid character"},
 		{"meter = [{role = 'gate', name = 'µµµ', every = 0}]\n", "1: column 40: meter 1 (gate): every: 0 s, must be above 0"},
 		{"meter = [\n {role = 'gate'},\n {role = 'gate'},\n]\n", "3: column 3: meter 2 (gate): role: "},
 		{"circuit.rl = '5 V'\n", "1: column 9: circuit: rl: "},
