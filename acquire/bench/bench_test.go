@@ -104,6 +104,8 @@ func TestPlaces(t *testing.T) {
 		{"[[meter]]\nrole='gate'\nline='x'\n[[supply]]\ndrives = 'gate'\nline = 'x'\n", `6: column 1: supply 1 (gate): line: "x" is the line of meter 1`},
 		{"[[meter]]\nrole='gate'\nline='x'\nsettings='2400 8N1'\n[[meter]]\nrole='load'\nline='x'\ncolumn=2\nsettings='9600 8N1'\n", `9: column 1: meter 2 (load): settings: "9600 8N1", but meter 1 on the same line has "2400 8N1"`},
 		{"[[meter]]\nrole='gate'\nline='x'\nspeaks='text'\n[[meter]]\nrole='load'\nline='x'\n", `5: column 3: meter 2 (load): column: column 1 of this line is meter 1 already`},
+		{"[[meter]]\nrole='gate'\nsettings='2400 9N1'\n", "3: column 1: meter 1 (gate): settings: "},
+		{"[[supply]]\ndrives='gate'\nline='x'\nsettings='fast'\n", "4: column 1: supply 1 (gate): settings: "},
 		{"[[meter]]\nrole='gate'\nspeaks='fs9721'\ncolumn=2\n", "4: column 1: meter 1 (gate): column: 2, but fs9721 says one value"},
 		{"[[meter]]\nrole='gate'\nspeaks='fs9721'\nevery=2\n", "4: column 1: meter 1 (gate): every: without ask"},
 	} {

@@ -2,6 +2,7 @@ package bench
 
 import (
 	"gatesill/acquire/meter"
+	"gatesill/acquire/port"
 )
 
 // formats are the ways in which meters speak.
@@ -31,4 +32,11 @@ func formatNames() []string {
 func needsAsk(f meter.Format) bool { return false }
 
 // settings checks the settings of a serial line.
-func (p *parser) settings(key, text string) {}
+func (p *parser) settings(key, text string) {
+	if text == "" {
+		return
+	}
+	if _, err := port.ParseSettings(text); err != nil {
+		p.fail(key, "%w", err)
+	}
+}
