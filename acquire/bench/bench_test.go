@@ -158,6 +158,8 @@ func TestCautions(t *testing.T) {
 		{load + "[limits]\nvds=10\n", "12 V is above"},
 		{load + "[[supply]]\ndrives='drain'\nline='x'\nvoltage=13\n", "gives 13 V when it is on, but"},
 		{"[[supply]]\ndrives='gate'\nline='x'\nswapped=true\n", "swapped"},
+		{"[[meter]]\nrole='gate'\nline='/dev/ttyUSB0'\n", "passing name"},
+		{"[[meter]]\nrole='gate'\nline='/dev/serial/by-id/usb-ttyUSB0'\n", ""},
 		{"[[supply]]\ndrives='gate'\nline='x'\nswapped=true\nisolated=true\n", ""},
 	} {
 		got := said(c.text)

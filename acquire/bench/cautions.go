@@ -2,6 +2,8 @@ package bench
 
 import (
 	"fmt"
+	"regexp"
+	"slices"
 	"strings"
 
 	"gatesill/store/record"
@@ -30,6 +32,11 @@ func (b *Bench) Cautions() []string {
 			say("the leads of the %s supply%s are swapped and it is not said to be isolated: a minus pole tied to ground shorts it through the source", s.Drives, named(s.Name))
 		}
 	}
+	for _, path := range b.paths() {
+		if passing.MatchString(path) {
+			say("%s is a passing name: after a restart it may be another meter's; gatesill meters shows the lasting ones", path)
+		}
+	}
 	c := b.Given
 	vdd, hasVDD := c.VDD.Get()
 	if rl, ok := c.RL.Get(); ok && hasVDD && c.Circuit != record.Fixed {
@@ -54,6 +61,22 @@ func (b *Bench) Cautions() []string {
 		}
 	}
 	return out
+}
+
+// passing are names that the system hands out in the order of appearance.
+var passing = regexp.MustCompile(`^/dev/(tty(USB|ACM)\d+|usbtmc\d+)$`)
+
+// paths are the lines of the bench, each once.
+func (b *Bench) paths() []string {
+	var out []string
+	for _, l := range b.Lines {
+		out = append(out, l.Path)
+	}
+	for _, s := range b.Supplies {
+		out = append(out, s.Path)
+	}
+	slices.Sort(out)
+	return slices.Compact(out)
 }
 
 // offGround tells where a meter sits when neither of its leads is at the source

@@ -51,7 +51,7 @@ coverage = "limit"         # what the accuracy statement is: limit, k=2 or 99 %
 [[meter]]
 role = "current"
 name = "bench meter"
-line = "192.0.2.7:5025"    # host and port of an instrument on the network
+line = "tcp:192.0.2.7:5025"   # host and port of an instrument on the network
 speaks = "scpi"
 setup = ["*CLS", "CONF:CURR:DC 1"]   # sent once, when the line is opened
 ask = "READ?"              # sent for every reading

@@ -7,7 +7,7 @@ import (
 
 // formats are the ways in which meters speak.
 var formats = []meter.Format{
-	{Name: "fs9721", Length: 14}, {Name: "scpi", Ask: "READ?"}, {Name: "text"},
+	{Name: "fs9721", Length: 14, Settings: "2400 8N1"}, {Name: "scpi", Ask: "READ?", Settings: "9600 8N1"}, {Name: "text"},
 }
 
 // findFormat finds a way of speaking by its name.

@@ -101,7 +101,7 @@ func (p *parser) line(key string, m *meterKeys, unit string) Line {
 		}
 	}
 	if unit != "" && m.Unit != "" {
-		if _, err := record.ParseNumber("1"+m.Unit, unit); err != nil || strings.ContainsAny(m.Unit, "0123456789.,+-") {
+		if !unitOf(m.Unit, unit) {
 			p.fail(key+".unit", "%q is no unit of what a %s meter reads, want %s with or without prefix", m.Unit, m.Role, unit)
 		}
 	}
