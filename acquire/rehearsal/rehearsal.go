@@ -75,14 +75,14 @@ type Config struct {
 	Meters   []Meter  `json:"meters"`
 	Supplies []string `json:"supplies"` // "gate", "drain": SCPI, on lines of their own, "supply-gate" and "supply-drain"
 	Seed     uint64   `json:"seed"`
-	Speed    float64  `json:"speed"`  // simulated seconds per second of hand and heat, 0 is 1; times of meters, supplies and lines do not change
-	Folder   string   `json:"folder"` // where the lines appear under their names, and the supplies' logs
-	Tremor   float64  `json:"tremor"` // of the hand at the knob, share of its rate
-	Bleed    float64  `json:"bleed_ohm"`  // gate to source; 0: none, so that the gate keeps its charge when its supply's output opens
-	Settle   float64  `json:"settle_s"`   // time constant of the supplies' outputs, 0 is 5 ms
-	Decay    float64  `json:"decay_s"`    // time constant of the supplies' outputs when they fall, 0 as Settle
-	Latency  float64  `json:"latency_s"`  // from the end of a command to its effect, 0 is 2 ms
-	MaxVgs   float64  `json:"max_vgs_v"`  // limits of the bench file, 0 not said
+	Speed    float64  `json:"speed"`     // simulated seconds per second of hand and heat, 0 is 1; times of meters, supplies and lines do not change
+	Folder   string   `json:"folder"`    // where the lines appear under their names, and the supplies' logs
+	Tremor   float64  `json:"tremor"`    // of the hand at the knob, share of its rate
+	Bleed    float64  `json:"bleed_ohm"` // gate to source; 0: none, so that the gate keeps its charge when its supply's output opens
+	Settle   float64  `json:"settle_s"`  // time constant of the supplies' outputs, 0 is 5 ms
+	Decay    float64  `json:"decay_s"`   // time constant of the supplies' outputs when they fall, 0 as Settle
+	Latency  float64  `json:"latency_s"` // from the end of a command to its effect, 0 is 2 ms
+	MaxVgs   float64  `json:"max_vgs_v"` // limits of the bench file, 0 not said
 	MaxVds   float64  `json:"max_vds_v"`
 	MaxID    float64  `json:"max_id_a"`
 	MaxPD    float64  `json:"max_pd_w"`
