@@ -71,20 +71,28 @@ func (l *line) begin(stop <-chan struct{}, run func(*talk) (float64, error)) <-c
 
 // do runs a job to its end, or gives the connection up when the limit has passed.
 func (l *line) do(limit time.Duration, stop <-chan struct{}, run func(*talk) (float64, error)) (float64, error) {
-	return l.await(l.begin(stop, run), limit)
-}
-
-func (l *line) await(done <-chan result, limit time.Duration) (float64, error) {
+	done := l.begin(stop, run)
 	t := time.NewTimer(limit)
 	defer t.Stop()
 	select {
 	case r := <-done:
 		return r.v, r.err
 	case <-t.C:
-		l.giveUp()
-		return math.NaN(), fmt.Errorf("%w: %s: hung for %v; connection given up", ErrLine, l.address, limit)
+	case <-stop:
+		// One read may still run out. A write that hangs is left behind.
+		limit = stopTime
+		t.Reset(limit)
+		select {
+		case r := <-done:
+			return r.v, r.err
+		case <-t.C:
+		}
 	}
+	l.giveUp()
+	return math.NaN(), fmt.Errorf("%w: %s: hung for %v; connection given up", ErrLine, l.address, limit)
 }
+
+const stopTime = 100 * time.Millisecond // five times a line's read time-out
 
 // giveUp leaves the connection behind. Only what is safe beside a hanging call is
 // done to it, and not here, as that can hang too.

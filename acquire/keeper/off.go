@@ -111,7 +111,7 @@ func (t *trip) command(try int) {
 		}
 	}
 	if g := t.gate; !g.reached && g.o.known {
-		gate = g.o.line.begin(nil, func(k *talk) (float64, error) { return g.o.commandGate(k, try, t.k.cfg.OffVoltage) })
+		gate = g.o.line.begin(nil, func(k *talk) (float64, error) { return g.o.commandGate(k, t.k.cfg.OffVoltage) })
 	}
 	left := func() time.Duration { return max(commandTime-time.Since(start), time.Millisecond) }
 	if drain != nil && !drainDone && (gate == nil || t.drain.o.line != t.gate.o.line) {
@@ -147,39 +147,43 @@ func (t *trip) noted(o *outlet, r result) {
 	t.taken = time.Now()
 }
 
-// fresh drops what waits to be sent: nothing may go out before or after the order to
-// go off.
-func (o *outlet) fresh(t *talk) error {
+// press says a command on the way off, after dropping what waits to be sent. Where a
+// conversation was broken off the next answer may be an old one; then none is waited
+// for, and reading back has to tell.
+func (o *outlet) press(t *talk, name string, v ...float64) error {
+	if !o.line.hasLeftover() {
+		return o.say(t, name, drainFirst, v...)
+	}
 	if err := t.conn.DiscardOutput(); err != nil {
 		return fmt.Errorf("%w: %w", ErrLine, err)
 	}
-	return nil
+	text := o.cmd[name]
+	if len(v) > 0 {
+		text = fill(text, v[0])
+	}
+	text, err := o.chosen(t, text)
+	if err != nil {
+		return err
+	}
+	return t.send(text)
 }
 
 // commandOff switches the drain supply off. From the second try on its voltage is
 // taken away as well, for a supply that refuses to switch.
 func (o *outlet) commandOff(t *talk, try int) (float64, error) {
-	if err := o.fresh(t); err != nil {
-		return 0, err
-	}
-	err := o.say(t, "off", drainFirst)
+	err := o.press(t, "off")
 	if try > 0 {
-		err = errors.Join(err, o.say(t, "set", drainFirst, 0))
+		err = errors.Join(err, o.press(t, "set", 0))
 	}
 	return 0, err
 }
 
-func (o *outlet) commandGate(t *talk, try int, v float64) (float64, error) {
+func (o *outlet) commandGate(t *talk, v float64) (float64, error) {
 	setting, err := o.setting(v)
 	if err != nil {
 		return 0, err
 	}
-	if try == 0 || o.line.hasLeftover() {
-		if err := o.fresh(t); err != nil {
-			return 0, err
-		}
-	}
-	return 0, o.say(t, "set", drainFirst, setting)
+	return 0, o.press(t, "set", setting)
 }
 
 // prove reads both supplies back.
@@ -303,7 +307,6 @@ func (t *trip) open() {
 		if err := o.say(k, "off", replyLimit); err != nil {
 			return 0, err
 		}
-		t.taken = time.Now()
 		if err := o.faults(k, replyLimit); err != nil {
 			return 0, err
 		}
@@ -317,7 +320,7 @@ func (t *trip) open() {
 		t.fault(o, err)
 		return
 	}
-	t.opened = true
+	t.opened, t.taken = true, time.Now()
 }
 
 // offAgain is an order to go off in the off state: what was not reached is tried once

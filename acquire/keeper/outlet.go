@@ -64,6 +64,7 @@ func (o *outlet) say(t *talk, name string, limit time.Duration, v ...float64) er
 		return fmt.Errorf("%s: %w", o, err)
 	}
 	if done == standard["complete"] && strings.TrimLeft(reply, "+") != "1" {
+		t.line.setLeftover(true)
 		return fmt.Errorf("%w: %s: %q was answered with %q, not with 1", ErrReadBack, o, text, reply)
 	}
 	return nil
