@@ -72,4 +72,3 @@ func bothWays(t *testing.T, readTimeout time.Duration, f func(t *testing.T, far 
 		})
 	}
 }
-

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"net"
+	"sync"
 	"testing"
 	"time"
 )
@@ -15,13 +16,25 @@ func server(t *testing.T, f func(c net.Conn)) (address string) {
 	if err != nil {
 		t.Skipf("no sockets here: %v", err)
 	}
-	t.Cleanup(func() { l.Close() })
+	var mu sync.Mutex
+	var all []net.Conn // which would be closed under the test when they are forgotten
+	t.Cleanup(func() {
+		l.Close()
+		mu.Lock()
+		defer mu.Unlock()
+		for _, c := range all {
+			c.Close()
+		}
+	})
 	go func() {
 		for {
 			c, err := l.Accept()
 			if err != nil {
 				return
 			}
+			mu.Lock()
+			all = append(all, c)
+			mu.Unlock()
 			go f(c)
 		}
 	}()
@@ -105,10 +118,15 @@ func staysLostSocket(t *testing.T, c Conn) {
 
 func TestSocketReset(t *testing.T) {
 	t.Parallel()
-	c, err := Open(server(t, func(c net.Conn) { c.(*net.TCPConn).SetLinger(0); c.Close() }), Settings{})
+	c, err := Open(server(t, func(c net.Conn) {
+		c.Read(make([]byte, 8))
+		c.(*net.TCPConn).SetLinger(0)
+		c.Close()
+	}), Settings{})
 	if err != nil {
 		t.Fatal(err)
 	}
+	c.Write([]byte("x"))
 	staysLostSocket(t, c)
 }
 
