@@ -72,20 +72,3 @@ func bothWays(t *testing.T, readTimeout time.Duration, f func(t *testing.T, far 
 		})
 	}
 }
-
-// readAll reads until want bytes came.
-func readAll(t *testing.T, c Conn, want int) string {
-	t.Helper()
-	var got []byte
-	buf := make([]byte, 256)
-	for end := time.Now().Add(5 * time.Second); len(got) < want; {
-		n, err := c.Read(buf)
-		if err != nil {
-			t.Fatalf("after %q: %v", got, err)
-		}
-		if got = append(got, buf[:n]...); time.Now().After(end) {
-			t.Fatalf("only %q came", got)
-		}
-	}
-	return string(got)
-}
