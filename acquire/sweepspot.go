@@ -5,7 +5,7 @@ import "math"
 // The rule by which a gate voltage at one current counts as settled: over the last
 // 30 s it moved at no more than 0.5 mV per 10 s.
 const (
-	slopeSpan  = 30.0   // s
+	slopeSpan  = 30.0 // s
 	slopeLimit = 0.5e-3 / 10
 	bucket     = 0.25 // s, of readings kept as one
 )
