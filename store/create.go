@@ -85,6 +85,11 @@ func (db *DB) removeUnmade() error {
 	return db.remove()
 }
 
+// rowsKept counts the rows that others hang on: 0 in a store in which nothing
+// was kept yet.
+const rowsKept = `SELECT (SELECT count(*) FROM lot) + (SELECT count(*) FROM part) + (SELECT count(*) FROM session)
+	+ (SELECT count(*) FROM bench) + (SELECT count(*) FROM column_map)`
+
 // RemoveIfEmpty closes the store and removes its file, with the folders that
 // Open made for it, if Open made the file and nothing was kept in it since. It
 // reports whether it did. A store with anything in it, or one that was there
@@ -99,8 +104,7 @@ func (db *DB) RemoveIfEmpty(ctx context.Context) (removed bool, err error) {
 		n, err := one(tx, "lots and parts", func(r row) (n int, err error) {
 			err = r.Scan(&n)
 			return n, err
-		}, `SELECT (SELECT count(*) FROM lot) + (SELECT count(*) FROM part) + (SELECT count(*) FROM session)
-			+ (SELECT count(*) FROM bench) + (SELECT count(*) FROM column_map)`)
+		}, rowsKept)
 		if err != nil || n > 0 {
 			return err
 		}

@@ -55,11 +55,17 @@ func (db *DB) upToDate(ctx context.Context, steps []migration) error {
 	if version >= len(steps) {
 		return header{magic: true, application: applicationID, version: uint32(version)}.check(len(steps))
 	}
-	if version == 0 && !db.readOnly {
-		return migrate(ctx, db.writes, steps) // its making was cut short: it is empty
-	}
 	if db.readOnly {
-		return fmt.Errorf("%w: it has the older form %d and must be brought to form %d first", ErrReadOnly, version, len(steps))
+		return fmt.Errorf("%w: it has the %w %d and must be brought to form %d first", ErrReadOnly, ErrOlder, version, len(steps))
+	}
+	var rows int
+	if version > 0 {
+		if err := db.writes.QueryRowContext(ctx, rowsKept).Scan(&rows); err != nil {
+			return err
+		}
+	}
+	if rows == 0 { // its making was cut short: there is nothing to copy
+		return migrate(ctx, db.writes, steps)
 	}
 	copied := fmt.Sprintf("%s.form%d.%s", db.path, version, time.Now().UTC().Format("20060102T150405Z"))
 	if err := db.Backup(ctx, copied, nil); err != nil && !errors.Is(err, ErrExists) {

@@ -1,12 +1,15 @@
 package store
 
 import (
+	"fmt"
 	"os"
 	"path/filepath"
 	"testing"
 	"testing/fstest"
 
 	"github.com/stretchr/testify/require"
+
+	"gatesill/store/record"
 )
 
 // next is a form that does not exist yet: what is to come, as far as opening
@@ -26,7 +29,7 @@ func TestMigrate(t *testing.T) {
 
 	_, err = open(background, path, Options{ReadOnly: true}, next)
 	require.ErrorIs(t, err, ErrReadOnly)
-	require.ErrorContains(t, err, "older form 1")
+	require.ErrorContains(t, err, fmt.Sprintf("older form %d", len(migrations)))
 
 	db, err := open(background, path, Options{}, next)
 	require.NoError(t, err)
@@ -34,12 +37,12 @@ func TestMigrate(t *testing.T) {
 	require.NoError(t, db.writes.QueryRow("PRAGMA user_version").Scan(&version))
 	require.NoError(t, db.writes.QueryRow("PRAGMA foreign_keys").Scan(&keys))
 	require.NoError(t, db.writes.QueryRow("SELECT count(*) FROM part WHERE maker = ''").Scan(&makers))
-	require.Equal(t, []int{3, 1, 1}, []int{version, keys, makers})
+	require.Equal(t, []int{len(next), 1, 1}, []int{version, keys, makers})
 	holds(t, db, lot, sweeps)
 	require.NoError(t, db.Close())
 
 	refused(t, path, Options{}, ErrNewer)
-	copies, err := filepath.Glob(path + ".form1.*")
+	copies, err := filepath.Glob(fmt.Sprintf("%s.form%d.*", path, len(migrations)))
 	require.NoError(t, err)
 	require.Len(t, copies, 1, "the older one beside it")
 	db, err = Open(background, copies[0], Options{})
@@ -58,12 +61,40 @@ func TestMigrate(t *testing.T) {
 	// One step after the other leads to the same as all at once.
 	second := filepath.Join(t.TempDir(), "gatesill.db")
 	require.NoError(t, os.WriteFile(second, older, 0o600))
-	for n := 2; n <= len(next); n++ {
+	for n := len(migrations) + 1; n <= len(next); n++ {
 		db, err := open(background, second, Options{}, next[:n])
 		require.NoError(t, err)
 		require.NoError(t, db.Close())
 	}
 	require.Equal(t, schema(t, path), schema(t, second))
+}
+
+// TestFormOne brings a store of the first form forward with what is in it.
+func TestFormOne(t *testing.T) {
+	path := filepath.Join(t.TempDir(), "gatesill.db")
+	db, err := open(background, path, Options{Create: true}, migrations[:1])
+	require.NoError(t, err)
+	p := record.NewPart("P")
+	require.NoError(t, db.Update(background, func(tx *Tx) error { return tx.PutPart(&p, "") }))
+	require.NoError(t, db.Close())
+	rawExec(t, path, `INSERT INTO lot SELECT '018f4e7c-0000-7000-8000-000000000001', 'L', id, '', '', '', NULL, '', 0, '', NULL, 0, '', '', NULL, '', created_at, '' FROM part`,
+		`INSERT INTO device SELECT '018f4e7c-0000-7000-8000-000000000002', id, 'D', NULL, '', '', '', '', 'sample', 0, '', '', created_at, '' FROM lot`,
+		`INSERT INTO sweep (id, device_id, position, direction, excluded, why, circuit, ammeter, gate_return, pulsed, temp_of, data_hash, points, vg_v, id_a)
+			SELECT '018f4e7c-0000-7000-8000-000000000003', id, 1, 'up', 0, '', '', '', '', '', '', hex(zeroblob(32)), 2, '[3.0,3.1]', '[0.001,0.002]' FROM device`)
+	_, err = Open(background, path, Options{ReadOnly: true})
+	require.ErrorIs(t, err, ErrOlder)
+	db = openStore(t, path, Options{})
+	view(t, db, func(tx *Tx) {
+		s, err := tx.Sweep("018f4e7c-0000-7000-8000-000000000003")
+		require.NoError(t, err)
+		require.Equal(t, []float64{3, 3.1}, s.Values(record.VG))
+		require.Nil(t, s.Column(record.PairBound))
+	})
+	fresh, _, _ := closedStore(t)
+	require.Equal(t, schema(t, fresh), schema(t, path))
+	copies, err := filepath.Glob(path + ".form1.*")
+	require.NoError(t, err)
+	require.Len(t, copies, 1)
 }
 
 // schema gives the statements that made all tables, indexes, views, triggers.
@@ -112,7 +143,7 @@ func TestNoMigrationWithoutCopy(t *testing.T) {
 	holds(t, db, lot, sweeps)
 	var version int
 	require.NoError(t, db.reads.QueryRow("PRAGMA user_version").Scan(&version))
-	require.Equal(t, 1, version)
+	require.Equal(t, len(migrations), version)
 }
 
 func TestLoadMigrations(t *testing.T) {

@@ -2,6 +2,7 @@ package store
 
 import (
 	"database/sql"
+	"fmt"
 	"net/url"
 	"os"
 	"path/filepath"
@@ -193,7 +194,7 @@ func TestOpenNewer(t *testing.T) {
 	for _, o := range []Options{{}, {Create: true}, {ReadOnly: true}} {
 		require.ErrorContains(t, refused(t, path, o, ErrNewer), "form 1000")
 	}
-	rawExec(t, path, "PRAGMA user_version = 1")
+	rawExec(t, path, fmt.Sprintf("PRAGMA user_version = %d", len(migrations)))
 	holds(t, openStore(t, path, Options{}), lot, sweeps)
 }
 
@@ -205,7 +206,7 @@ func TestOpenNewerInTheLog(t *testing.T) {
 	require.NoError(t, err)
 	h, err := readHeader(path)
 	require.NoError(t, err)
-	require.EqualValues(t, 1, h.version, "the file itself does not have it yet")
+	require.EqualValues(t, len(migrations), h.version, "the file itself does not have it yet")
 	_, err = Open(background, path, Options{})
 	require.ErrorIs(t, err, ErrNewer)
 }

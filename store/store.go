@@ -20,6 +20,7 @@ var (
 	ErrNewer    = errors.New("written by a newer Gatesill")
 	ErrCorrupt  = errors.New("damaged")
 	ErrReadOnly = errors.New("read-only")
+	ErrOlder    = errors.New("older form") // beside ErrReadOnly: opening it for writing brings it forward
 	ErrFull     = errors.New("no space left")
 	ErrBusy     = errors.New("in use by another program")
 	ErrNoStore  = errors.New("no store there")

@@ -203,8 +203,8 @@ func TestLiveSweep(t *testing.T) {
 	whole := s.Columns
 	s.Columns = nil
 	readings := []record.Reading{
-		{Role: "gate", Meter: "m1", At: 0.1, Value: record.Known(3.01), Unit: "V", Raw: []byte{0, 1, 0xff}},
-		{Role: "current", Meter: "m2", At: 0.2, State: record.Overload, Unit: "A", Raw: []byte("O.L")},
+		{Role: "gate", Meter: "m1", At: 0.1, Value: record.Known(3.01), Unit: "V", Raw: []byte{0, 1, 0xff}, Digit: record.Known(0.01)},
+		{Role: "current", Meter: "m2", At: 0.2, State: record.Overload, Unit: "A", Raw: []byte("O.L"), Refused: "held"},
 	}
 	update(t, db, func(tx *Tx) {
 		require.NoError(t, tx.StartSweep(&s))
@@ -223,6 +223,20 @@ func TestLiveSweep(t *testing.T) {
 		got, err := tx.Readings(s.ID)
 		require.NoError(t, err)
 		require.Equal(t, readings, got)
+	})
+	given := invented(kept[1].DeviceID, 2)
+	given.Columns = nil
+	update(t, db, func(tx *Tx) {
+		require.NoError(t, tx.StartSweep(&given))
+		require.NoError(t, tx.ExcludeSweep(given.ID, true, "given up"))
+		session := record.Session{Name: "S"}
+		require.NoError(t, tx.AddSession(&session))
+		events := []record.Event{{SessionID: session.ID, At: 1, Kind: "zero", Text: "{}"}, {SessionID: session.ID, SweepID: s.ID, At: 0.5, Kind: "limit", Text: "P_D"}}
+		require.NoError(t, tx.AddEvents(events))
+		got, err := tx.Events(session.ID)
+		require.NoError(t, err)
+		require.Equal(t, events, got)
+		require.ErrorIs(t, tx.AddEvents([]record.Event{{SessionID: "x", Kind: "zero"}}), ErrNotFound)
 	})
 	s.Columns = whole
 	update(t, db, func(tx *Tx) {

@@ -116,7 +116,15 @@ func (e *Env) open(ctx context.Context, create, readOnly bool) (*store.DB, error
 	if err != nil {
 		return nil, failed("name one with --store PATH", "%w", err)
 	}
-	db, err := store.Open(ctx, path, store.Options{Create: create, ReadOnly: readOnly, Wait: 10 * time.Second, Who: e.Who})
+	o := store.Options{Create: create, ReadOnly: readOnly, Wait: 10 * time.Second, Who: e.Who}
+	db, err := store.Open(ctx, path, o)
+	if errors.Is(err, store.ErrOlder) {
+		// Bringing it forward needs writing, once; the old one stays beside it.
+		o.ReadOnly = false
+		if db, err = store.Open(ctx, path, o); err == nil {
+			e.talk("store %s was brought to this version's form; a copy of the old one lies beside it", report.Clean(path))
+		}
+	}
 	if err != nil {
 		return nil, storeFailure(err)
 	}
