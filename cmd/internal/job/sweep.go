@@ -51,17 +51,20 @@ type sweeper struct {
 	timing  map[string]acquire.Timing
 	events  chan acquire.Event
 	keys    <-chan rune
-	live    *screen.Live
-	sim     *rehearsed
-	drive   *driver // of the device in the fixture; nil: none
-	lock    *acquire.Interlock
-	scale   map[string]float64
-	swap    map[string]string // roles whose lines are exchanged
-	lines   []string          // what was said, newest first
-	beeps   int
-	control bool
-	trouble error // that ended a device
-	doc     report.SweepDoc
+	picture *screen.Live
+	last    map[string]heardLast
+
+	restoreKeys func()
+	sim         *rehearsed
+	drive       *driver // of the device in the fixture; nil: none
+	lock        *acquire.Interlock
+	scale       map[string]float64
+	swap        map[string]string // roles whose lines are exchanged
+	lines       []string          // what was said, newest first
+	beeps       int
+	control     bool
+	trouble     error // that ended a device
+	doc         report.SweepDoc
 }
 
 // errQuit ends the session at the operator's wish.
@@ -69,7 +72,7 @@ var errQuit = errors.New("session ended by the operator")
 
 // Sweep measures devices of a lot with the meters of a bench.
 func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
-	w := &sweeper{rq: rq, events: make(chan acquire.Event, 4096), scale: map[string]float64{}, swap: map[string]string{}}
+	w := &sweeper{rq: rq, events: make(chan acquire.Event, 4096), last: map[string]heardLast{}, scale: map[string]float64{}, swap: map[string]string{}}
 	b, err := w.findBench(ctx, env)
 	if err != nil {
 		return err
@@ -102,7 +105,7 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 			}
 		})
 	}()
-	err = w.session(ctx)
+	err = w.work(ctx)
 	stop()
 	<-heard
 	restored := w.restore()
@@ -263,7 +266,7 @@ func (w *sweeper) terminal() error {
 	}
 	w.keys = keys
 	if keys == nil {
-		w.live = screen.NewLive(io.Discard, nil, false) // what is said goes to stderr line by line
+		w.picture = screen.NewLive(io.Discard, nil, false) // what is said goes to stderr line by line
 		w.restoreKeys = restore
 		if w.sim == nil && (w.rq.SkipChecks == "" || len(w.rq.Devices) != 1) {
 			return Usage("--rehearsal needs nobody; so does one DEVICE that sits in the fixture already, with --skip-checks REASON",
@@ -272,13 +275,13 @@ func (w *sweeper) terminal() error {
 		return nil
 	}
 	w.restoreKeys = restore
-	w.live = screen.NewLive(w.rq.Raw, w.rq.Size, w.env.Color)
+	w.picture = screen.NewLive(w.rq.Raw, w.rq.Size, w.env.Color)
 	return nil
 }
 
 // restore gives the terminal back and says once more what was said last.
 func (w *sweeper) restore() error {
-	err := w.live.Close()
+	err := w.picture.Close()
 	w.restoreKeys()
 	if w.keys != nil {
 		for i := min(len(w.lines), 5) - 1; i >= 0; i-- {
@@ -290,7 +293,7 @@ func (w *sweeper) restore() error {
 
 // conclude shows what the session brought.
 func (w *sweeper) conclude() error {
-	w.doc.Lot, w.doc.Session = w.lot.Name, w.session.ID
+	w.doc.Lot, w.doc.Session = w.lot.Name, w.sitting.session.ID
 	var err error
 	if w.env.JSON {
 		err = report.SweepJSON(w.env.Out, w.doc)
