@@ -40,6 +40,9 @@ func (c *channel) inWindow(from, to float64) (span, bool) {
 	}
 	last := &convs[len(convs)-1]
 	far := gapCycles*last.cycle + c.timing.Jitter
+	if c.role == Gate && c.from(from) == 0 && convs[0].t-from > last.cycle/2 {
+		return s, false // what was before the first reading is not known
+	}
 	return s, last.cycle > 0 && convs[0].t-from <= far && to-last.t <= far
 }
 
