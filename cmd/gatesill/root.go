@@ -68,6 +68,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
 		reportCmd(env), exportCmd(env), backupCmd(env), versionCmd(env),
 	)
+	root.AddCommand(processCmds()...)
 	root.SetHelpCommand(helpCmd(env))
 	root.InitDefaultCompletionCmd()
 	for _, c := range root.Commands() {
