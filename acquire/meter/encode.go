@@ -87,7 +87,11 @@ func (s Shown) power() (int, error) {
 
 // counts is the display without its point, at most most.
 func (s Shown) counts(most int) (n int, minus bool, err error) {
-	if s.State != "" {
+	switch s.State {
+	case "":
+	case record.Missing:
+		return 0, false, unsayable("no value")
+	default:
 		return 0, s.State == record.Underload, nil
 	}
 	c := math.Round(math.Abs(s.Value) / s.Digit)

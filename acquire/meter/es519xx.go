@@ -1,5 +1,7 @@
 package meter
 
+import "math"
+
 // The ES519xx chips send a digit for the range, the digits of the display, a
 // character for the function, nibbles of flags, CR, LF; every byte but the last two
 // is 0x30 plus a nibble. What a function's character means differs between the
@@ -72,7 +74,11 @@ func es51922Read(f []byte) (Reading, error) {
 	under := b(9, 3)
 	r.DC, r.AC, r.Auto, r.Hold = b(10, 3), b(10, 2), b(10, 1), b(11, 1)
 	err := r.es(f, f[1:6], f[6]&0x7F, f[7], es51922Functions)
-	if err == nil && under {
+	switch {
+	case err != nil || !under:
+	case r.Unit == "V" || r.Unit == "A": // there is no voltage too small to be shown
+		return r, bad("%q: below the range in %s", f, r.Unit)
+	default:
 		r.over(true)
 	}
 	return r, err
@@ -85,8 +91,13 @@ func es4000Read(f []byte) (Reading, error) {
 	b := func(k int, bit byte) bool { return f[k]>>bit&1 == 1 }
 	r.Max, r.Min = b(7, 3), b(7, 2)
 	r.DC, r.AC, r.Auto = b(8, 3), b(8, 2), b(8, 1)
-	err := r.es(f, f[1:5], f[5]&0x7F, f[6], es4000Functions)
-	return r, err
+	if err := r.es(f, f[1:5], f[5]&0x7F, f[6], es4000Functions); err != nil {
+		return r, err
+	}
+	if (r.Unit == "V" || r.Unit == "A") && math.Abs(r.Value) > 4000.5*r.Digit {
+		return r, bad("%q: over 4000 counts", f)
+	}
+	return r, nil
 }
 
 // es reads what the chips have in common. Status bits: 3 a choice within the
@@ -99,6 +110,9 @@ func (r *Reading) es(f, display []byte, name, status byte, functions map[byte]fu
 	m, err := digits(display)
 	if err != nil {
 		return err
+	}
+	if (r.DC || r.AC) && fn.unit != "V" && fn.unit != "A" {
+		return bad("%q: %s with DC or AC", f, fn.unit)
 	}
 	r.Unit, r.Test, r.LowBatt = fn.unit, fn.test, status&2 != 0
 	minus, place := status&4 != 0, int(f[0]&15)

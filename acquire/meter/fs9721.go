@@ -27,7 +27,8 @@ func fs9721Read(f []byte) (Reading, error) {
 	minus := b(2, 3)
 
 	var m int64
-	decimals, points, overload, seen := 0, 0, false, false
+	decimals, points := 0, 0
+	overload, seen, gap := false, false, false
 	for i := range 4 {
 		g := glyphs[f[1+2*i]&7<<4|f[2+2*i]&15]
 		switch {
@@ -35,9 +36,9 @@ func fs9721Read(f []byte) (Reading, error) {
 			return r, bad("% X: digit %d is no digit", f, i+1)
 		case g == 'L':
 			overload = true
-		case g == ' ' && seen:
-			return r, bad("% X: blank within the number", f)
-		case g != ' ':
+		case g == ' ':
+			gap = gap || seen
+		default:
 			m, seen = m*10+int64(g-'0'), true
 		}
 		if i > 0 && b(2*(i+1), 3) {
@@ -52,6 +53,8 @@ func fs9721Read(f []byte) (Reading, error) {
 		return r, bad("% X: digits beside the overload mark", f)
 	case !overload && !seen:
 		return r, bad("% X: the display is empty", f)
+	case !overload && gap:
+		return r, bad("% X: blank within the number", f)
 	}
 
 	exp, prefixes := ones([]flag[int]{{b(10, 3), -6}, {b(10, 2), -9}, {b(10, 1), 3}, {b(11, 3), -3}, {b(11, 1), 6}})

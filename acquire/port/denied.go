@@ -3,6 +3,7 @@ package port
 import (
 	"fmt"
 	"path/filepath"
+	"runtime"
 	"strings"
 )
 
@@ -13,8 +14,12 @@ type ownership struct {
 	active bool   // this process has the group
 }
 
-// deniedText says what stands in the way and what helps.
+// deniedText says what stands in the way and what helps on Linux, or elsewhere just
+// the former.
 func deniedText(device string, o ownership) string {
+	if runtime.GOOS != "linux" {
+		return fmt.Sprintf("%s belongs to the group %q", device, o.group)
+	}
 	var b strings.Builder
 	name := filepath.Base(device)
 	switch {

@@ -20,8 +20,9 @@ type libraryLine struct {
 	line
 	p       serial.Port
 	modem   bool
-	reading sync.Mutex // held during the library's Read, which ends by its time-out
+	reading sync.Mutex    // held during the library's Read, which ends by its time-out
 	writing chan struct{} // holds one token while nothing is being written
+	gone    chan struct{} // closed by Close
 }
 
 const (
@@ -38,7 +39,7 @@ func newLibraryLine(address string, p serial.Port, s Settings, readTimeout time.
 	}
 	l := &libraryLine{
 		line: line{address: address, readTimeout: readTimeout, byteTime: s.ByteTime()},
-		p:    p, modem: setModemLines(p, s), writing: make(chan struct{}, 1),
+		p:    p, modem: setModemLines(p, s), writing: make(chan struct{}, 1), gone: make(chan struct{}),
 	}
 	l.writing <- struct{}{}
 	return l, nil
@@ -85,6 +86,8 @@ func (l *libraryLine) Write(p []byte) (int, error) {
 	defer timer.Stop()
 	select {
 	case <-l.writing:
+	case <-l.gone:
+		return 0, l.failed(os.ErrClosed)
 	case <-timer.C: // one that got stuck earlier still is
 		return 0, l.stuck(0, len(p), limit)
 	}
@@ -114,6 +117,8 @@ func (l *libraryLine) Write(p []byte) (int, error) {
 			o.err = fmt.Errorf("%d of %d bytes taken", o.n, len(p))
 		}
 		return o.n, l.failed(o.err)
+	case <-l.gone:
+		return 0, l.failed(os.ErrClosed)
 	case <-timer.C:
 		return 0, l.stuck(0, len(p), limit)
 	}
@@ -140,6 +145,7 @@ func (l *libraryLine) Close() error {
 	if !l.shut() {
 		return nil
 	}
+	close(l.gone)
 	read := make(chan struct{})
 	go func() { // stays behind if a driver never comes back from Read
 		l.reading.Lock()

@@ -20,8 +20,8 @@ var (
 	ErrBusy     = errors.New("line is in use by another program")
 	ErrDenied   = errors.New("no right to open the line") // the text says which group and which command
 	ErrAbsent   = errors.New("no such line")
-	ErrLost     = errors.New("line was lost")        // unplugged, or the far end went
-	ErrStuck    = errors.New("line takes no bytes")  // the write time-out passed
+	ErrLost     = errors.New("line was lost")       // unplugged, or the far end went
+	ErrStuck    = errors.New("line takes no bytes") // the write time-out passed
 	ErrEnd      = errors.New("recorded log is at its end")
 	ErrSettings = errors.New("line settings")
 )
