@@ -1,6 +1,7 @@
 package bench
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 	"strconv"
@@ -87,12 +88,12 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 		on += " (" + f.Text + ")"
 	}
 	var help []string
-	for _, k := range formats {
-		help = append(help, fmt.Sprintf("  %-10s %s", k.Name, k.Text))
+	for l := range strings.Lines(meter.Help()) {
+		help = append(help, "  "+strings.TrimRight(l, "\n"))
 	}
 	key := func(what string) string { return fmt.Sprintf("line %d: %s", i+1, what) }
 	qs := []Question{{
-		Key: key("speaks"), Text: "How does the meter on " + on + " speak?", Help: append(help, "  skip       no meter, or not for this bench"),
+		Key: key("speaks"), Text: "How does the meter on " + on + " speak?", Help: append(help, "  skip                     no meter, or not for this bench"),
 		Choices: append(formatNames(), skip),
 	}}
 	format, ok := findFormat(a[key("speaks")])
@@ -100,7 +101,7 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 		return qs
 	}
 	if serial(f.Path) {
-		qs = append(qs, Question{Key: key("settings"), Text: "Settings of this line, such as 2400 8N1?", Default: format.Settings, check: func(s string) (string, error) {
+		qs = append(qs, Question{Key: key("settings"), Text: "Settings of this line, such as 2400 8N1?", Default: cmp.Or(format.Settings, "9600 8N1"), check: func(s string) (string, error) {
 			_, err := port.ParseSettings(s)
 			return s, err
 		}})
@@ -210,7 +211,7 @@ func number(unit string, above bool) func(string) (string, error) {
 }
 
 // hasColumns tells whether what a format says at once can be several values.
-func hasColumns(f meter.Format) bool { return f.Name == "text" }
+func hasColumns(f meter.Format) bool { return f.Lines }
 
 // serial tells whether a line has settings.
 func serial(path string) bool {
