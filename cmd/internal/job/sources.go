@@ -70,4 +70,3 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 	}
 	return out
 }
-
