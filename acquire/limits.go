@@ -221,7 +221,7 @@ func (g *Guard) drain() float64 {
 // Look gives what the guard sees now.
 func (g *Guard) Look() Watch {
 	w := Watch{Vgs: g.last[Gate].max(), Vds: g.drain(), ID: g.current(), Temp: g.last[Temperature].max()}
-	w.PD = product(w.Vds, w.ID)
+	w.PD = g.power(w.Vds, w.ID)
 	w.Resistor = math.NaN()
 	if rl := g.circuit.RL.Float(); rl > 0 && g.circuit.Circuit != record.Fixed {
 		w.Resistor = product(w.ID, w.ID) * rl
@@ -237,6 +237,29 @@ func (g *Guard) Look() Watch {
 		}
 	}
 	return w
+}
+
+// power gives the greatest power in the device. Two meters that do not read at one
+// instant are multiplied at their worst. On a load line of a known supply without a
+// drain meter each meter tells the power by itself, so that a gate that was just
+// turned back does not pass for a device with all current and all voltage at once.
+func (g *Guard) power(vds, id float64) float64 {
+	worst := product(vds, id)
+	vdd, rl := g.supply(), g.circuit.RL.Float()
+	if g.circuit.Circuit != record.Load || g.last[Drain] != nil || !(vdd > 0) || !(rl > 0) || math.IsInf(worst, 1) {
+		return worst
+	}
+	pd := math.NaN()
+	each := func(role string, drop func(x float64) float64) {
+		l := g.last[role]
+		for k := 0; l != nil && k < l.n; k++ {
+			vl := drop(l.v[k])
+			pd = greater(pd, vl/rl*math.Max(0, vdd-vl))
+		}
+	}
+	each(Load, func(x float64) float64 { return x })
+	each(Current, func(x float64) float64 { return x * rl })
+	return pd
 }
 
 // expected gives the shares that a drain current id (A, magnitude) at a gate

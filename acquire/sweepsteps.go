@@ -256,6 +256,8 @@ func (r *Runner) far(u, id float64) (why string, ok bool) {
 		return "the end of the sweep", true
 	case u >= r.end()-1e-6:
 		return "the greatest gate voltage is reached", true
+	case !r.plan.To.IsKnown() && id >= ohmic*r.guard.most():
+		return "the load resistor sets the current", true
 	case id >= r.lastCurrent()*0.999:
 		if idle, known := r.plan.Idle.Get(); known && id >= beyond*math.Abs(idle)*0.999 {
 			return fmt.Sprintf("the idle current is passed by %.0f %%", 100*(beyond-1)), true
