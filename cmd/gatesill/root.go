@@ -2,6 +2,7 @@ package main
 
 import (
 	"bufio"
+	"cmp"
 	"context"
 	"fmt"
 	"os"
@@ -66,7 +67,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (no verb does so far)")
 	root.AddCommand(
 		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
-		reportCmd(env), exportCmd(env), backupCmd(env), versionCmd(env),
+		reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
 	root.SetHelpCommand(helpCmd(env))
 	root.InitDefaultCompletionCmd()
@@ -115,6 +116,9 @@ func fillEnv(env *job.Env, cmd *cobra.Command, color string) error {
 	if term.IsTerminal(int(os.Stdin.Fd())) && errTTY {
 		env.Ask = ask(cmd.Context(), env)
 	}
+	if term.IsTerminal(int(os.Stdin.Fd())) && outTTY && os.Getenv("TERM") != "dumb" {
+		env.Screen = &job.Screen{Size: screenSize, Keys: keys}
+	}
 	return nil
 }
 
@@ -139,6 +143,9 @@ func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error)
 			if len(q.Choices) > 0 {
 				fmt.Fprintf(env.Err, "[%s] ", report.Clean(strings.Join(q.Choices, ", ")))
 			}
+			if q.Default != "" {
+				fmt.Fprintf(env.Err, "(Enter: %s) ", report.Clean(q.Default))
+			}
 			fmt.Fprint(env.Err, "? ")
 			select {
 			case <-ctx.Done():
@@ -149,7 +156,7 @@ func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error)
 				}
 				return "", job.Usage("answer with "+q.Flag, "no answer")
 			case line := <-lines:
-				answer := strings.TrimSpace(line)
+				answer := cmp.Or(strings.TrimSpace(line), q.Default)
 				if slices.Contains(q.Choices, answer) || answer != "" && len(q.Choices) == 0 {
 					return answer, nil
 				}
