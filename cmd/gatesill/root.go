@@ -69,6 +69,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
 		reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
+	root.AddCommand(processCmds()...)
 	root.SetHelpCommand(helpCmd(env))
 	root.InitDefaultCompletionCmd()
 	for _, c := range root.Commands() {

@@ -4,51 +4,77 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"io"
+	"math"
 	"os"
 
 	"gatesill/acquire/bench"
 	"gatesill/acquire/rehearsal"
 )
 
-// RehearsalVerb is the word by which the program starts itself as the process of a
-// rehearsal. It is no verb for people.
+// RehearsalVerb is the hidden verb by which the program starts itself as a
+// simulated bench.
 const RehearsalVerb = "rehearsal-process"
 
-// RehearsalProcess is that process; it gives its exit code.
-func RehearsalProcess(stdin io.Reader, stdout io.Writer) int { return rehearsal.Main(stdin, stdout) }
+// rehearsed is a rehearsal bench with the hand that does at it what the operator is
+// asked to do.
+type rehearsed struct {
+	*rehearsal.Rehearsal
+	bench    *bench.Bench
+	folder   string
+	inserted string
+	aim      float64 // V, where the hand turns the knob; NaN: it has not been asked yet
+}
 
-// rehearse starts a bench that does not exist, with a device in it and its gate
-// being turned up, and runs f on it.
-func rehearse(ctx context.Context, env *Env, f func(context.Context, *bench.Bench) error) (err error) {
-	c, err := rehearsal.Standard(rehearsal.Handheld)
-	if err != nil {
-		return failed("", "%w", err)
-	}
-	c.Folder, err = os.MkdirTemp("", "gatesill-rehearsal-")
-	if err != nil {
-		return failed("", "%w", err)
-	}
-	defer os.RemoveAll(c.Folder)
+// handRate is how fast the simulated hand turns the knob, V/s.
+const handRate = 0.25
+
+// rehearse starts a simulated bench.
+func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
 	exe, err := os.Executable()
 	if err != nil {
-		return failed("", "%w", err)
+		return nil, failed("", "rehearsal: %w", err)
 	}
+	folder, err := os.MkdirTemp("", "gatesill-rehearsal-")
+	if err != nil {
+		return nil, failed("", "rehearsal: %w", err)
+	}
+	c.Folder = folder
 	r, err := rehearsal.Start(ctx, exe, []string{RehearsalVerb}, nil, c)
 	if err != nil {
-		return &Failure{Code: ExitInstrument, Err: err}
+		return nil, &Failure{Code: ExitInstrument, Err: errors.Join(err, os.RemoveAll(folder)), Hint: "a rehearsal needs pseudo-terminals, which Linux and macOS have"}
 	}
-	defer func() {
-		if cerr := r.Close(); err == nil && ctx.Err() == nil {
-			err = cerr
-		}
-	}()
 	b, err := bench.Parse([]byte(r.Bench()))
 	if err != nil {
-		return failed("", "bench of the rehearsal: %w", err)
+		return nil, errors.Join(fmt.Errorf("rehearsal: bench file:%w", err), r.Close(), os.RemoveAll(folder))
 	}
-	if err := errors.Join(r.Insert(c.Devices[0].Name), r.Knob(2.6, 0), r.Knob(3.4, 0.02)); err != nil {
-		return failed("", "%w", fmt.Errorf("rehearsal: %w", err))
+	return &rehearsed{Rehearsal: r, bench: b, folder: folder, aim: math.NaN()}, nil
+}
+
+// close ends the simulated bench.
+func (r *rehearsed) close() error {
+	if r == nil {
+		return nil
 	}
-	return f(ctx, b)
+	return errors.Join(r.Close(), os.RemoveAll(r.folder))
+}
+
+// insert puts a device into the simulated fixture; "" takes out what is in it.
+func (r *rehearsed) insert(device string) error {
+	if r.inserted == device {
+		return nil
+	}
+	r.inserted = device
+	if device == "" {
+		return r.Remove()
+	}
+	return r.Insert(device)
+}
+
+// turn sends the simulated hand to a gate voltage.
+func (r *rehearsed) turn(v float64) error {
+	if v == r.aim {
+		return nil
+	}
+	r.aim = v
+	return r.Knob(v, handRate)
 }
