@@ -16,9 +16,6 @@ func main() { os.Exit(run(os.Args[1:])) }
 
 // run runs one command line and gives its exit code.
 func run(args []string) int {
-	if len(args) == 1 && args[0] == job.RehearsalVerb {
-		return job.RehearsalProcess(os.Stdin, os.Stdout)
-	}
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
 	defer stop()
 	root := newRoot()

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"os"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -33,6 +34,9 @@ limits, and writes a bench file.`,
 		RunE: func(cmd *cobra.Command, _ []string) error {
 			if cmd.Flags().Changed("for") && rq.For <= 0 {
 				return job.Usage("--for 5s", "--for %v: how long is to be listened must be above 0", rq.For)
+			}
+			if isTerminal(env.Out) && os.Getenv("TERM") != "dumb" {
+				rq.Keyboard, rq.Size, rq.Draw = keyboard, terminalSize, env.Err
 			}
 			return job.Meters(cmd.Context(), env, rq)
 		},

@@ -66,7 +66,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
 	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (no verb does so far)")
 	root.AddCommand(
-		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
+		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
 		reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
 	root.AddCommand(processCmds()...)
@@ -116,9 +116,6 @@ func fillEnv(env *job.Env, cmd *cobra.Command, color string) error {
 	}
 	if term.IsTerminal(int(os.Stdin.Fd())) && errTTY {
 		env.Ask = ask(cmd.Context(), env)
-	}
-	if term.IsTerminal(int(os.Stdin.Fd())) && outTTY && os.Getenv("TERM") != "dumb" {
-		env.Screen = &job.Screen{Size: screenSize, Keys: keys}
 	}
 	return nil
 }

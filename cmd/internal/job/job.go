@@ -32,17 +32,8 @@ type Env struct {
 
 	Ask      func(table.Question) (string, error) // nil: stdin is no terminal
 	Progress bool                                 // Err is a terminal
-	Screen   *Screen                              // nil: live pictures cannot be drawn
 	Who      string                               // for the audit trail
 	Version  string                               // of the program
-}
-
-// Screen is a terminal that pictures can be drawn on and that gives single keys.
-type Screen struct {
-	Size func() (width, height int)
-	// Keys takes over the keyboard until restore is called; keys come one by one,
-	// an interrupt among them.
-	Keys func() (keys <-chan byte, restore func(), err error)
 }
 
 // Exit codes, as promised to scripts.

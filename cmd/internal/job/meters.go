@@ -14,6 +14,7 @@ import (
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
 	"gatesill/acquire/port"
+	"gatesill/acquire/rehearsal"
 	"gatesill/acquire/table"
 	"gatesill/report"
 	"gatesill/report/screen"
@@ -25,6 +26,10 @@ type MetersRequest struct {
 	Write     string        // bench file to be written from answers
 	Rehearsal bool          // a bench that does not exist
 	For       time.Duration // how long is listened; 0: 3 s, on a terminal until a key
+
+	Keyboard func() (keys <-chan rune, restore func(), err error) // nil, or no keys: nothing is drawn live
+	Size     func() (width, height int)
+	Draw     io.Writer // the terminal that is drawn on
 }
 
 // usualListening is long enough for the slowest handheld to have said several readings.
@@ -43,7 +48,7 @@ func Meters(ctx context.Context, env *Env, rq MetersRequest) error {
 	case rq.Write != "":
 		return writeBench(ctx, env, rq.Write)
 	case rq.Rehearsal:
-		return rehearse(ctx, env, func(ctx context.Context, b *bench.Bench) error { return watchMeters(ctx, env, b, rq.For, true) })
+		return rehearseMeters(ctx, env, rq)
 	case rq.Bench == "":
 		return listPorts(env)
 	}
@@ -51,7 +56,25 @@ func Meters(ctx context.Context, env *Env, rq MetersRequest) error {
 	if err != nil {
 		return err
 	}
-	return watchMeters(ctx, env, b, rq.For, false)
+	return watchMeters(ctx, env, b, rq)
+}
+
+// rehearseMeters shows three simulated handhelds, with a device in the fixture and
+// its gate being turned up.
+func rehearseMeters(ctx context.Context, env *Env, rq MetersRequest) (err error) {
+	c, err := rehearsal.Standard(rehearsal.Handheld)
+	if err != nil {
+		return failed("", "%w", err)
+	}
+	r, err := rehearse(ctx, c)
+	if err != nil {
+		return err
+	}
+	defer func() { err = errors.Join(err, r.close()) }()
+	if err := errors.Join(r.insert(c.Devices[0].Name), r.Knob(2.8, 0), r.Knob(3.3, 0.01)); err != nil {
+		return failed("", "rehearsal: %w", err)
+	}
+	return watchMeters(ctx, env, r.bench, rq)
 }
 
 // readBench reads a bench file that is to be listened to.
@@ -101,10 +124,20 @@ func ports() ([]report.PortRow, error) {
 
 // watchMeters listens to a bench and shows what its meters say: live on a
 // terminal, as one table or one JSON object a meter otherwise.
-func watchMeters(ctx context.Context, env *Env, b *bench.Bench, long time.Duration, invented bool) error {
+func watchMeters(ctx context.Context, env *Env, b *bench.Bench, rq MetersRequest) error {
 	start := time.Now()
 	watch := newMeterWatch(b, start)
-	live := env.Screen != nil && !env.JSON
+	var keys <-chan rune
+	giveBack := func() {}
+	if rq.Keyboard != nil && !env.JSON {
+		k, restore, err := rq.Keyboard()
+		if err != nil {
+			return err
+		}
+		defer restore()
+		keys, giveBack = k, restore
+	}
+	live, long := keys != nil, rq.For
 	if long == 0 && !live {
 		long = usualListening
 	}
@@ -132,12 +165,13 @@ func watchMeters(ctx context.Context, env *Env, b *bench.Bench, long time.Durati
 	go func() { ended <- listen(listening, b, start, emit) }()
 	var err error
 	if live {
-		err = showMeters(listening, env, func(now float64) screen.Model {
+		err = showMeters(listening, screen.NewLive(rq.Draw, rq.Size, env.Color), keys, func(now float64) screen.Model {
 			mu.Lock()
 			defer mu.Unlock()
-			return watch.picture(now, invented)
+			return watch.picture(now, rq.Rehearsal)
 		}, start)
 		stop()
+		giveBack() // before anything is written line by line
 	}
 	if lerr := <-ended; lerr != nil && !errors.Is(lerr, context.Canceled) && !errors.Is(lerr, context.DeadlineExceeded) {
 		return &Failure{Code: ExitInstrument, Err: lerr}
@@ -149,7 +183,7 @@ func watchMeters(ctx context.Context, env *Env, b *bench.Bench, long time.Durati
 	if env.JSON {
 		err = report.MetersJSON(env.Out, rows)
 	} else {
-		if err = report.MetersTable(env.Out, rows, env.style()); err == nil && invented {
+		if err = report.MetersTable(env.Out, rows, env.style()); err == nil && rq.Rehearsal {
 			env.talk("\nrehearsal: the bench does not exist, every value is invented")
 		}
 	}
@@ -182,13 +216,7 @@ func silent(rows []report.MeterRow) error {
 const redraw = 200 * time.Millisecond
 
 // showMeters draws until a key, or until ctx ends.
-func showMeters(ctx context.Context, env *Env, picture func(now float64) screen.Model, start time.Time) error {
-	keys, restore, err := env.Screen.Keys()
-	if err != nil {
-		return err
-	}
-	defer restore()
-	l := screen.NewLive(env.Out, env.Screen.Size, env.Color)
+func showMeters(ctx context.Context, l *screen.Live, keys <-chan rune, picture func(now float64) screen.Model, start time.Time) error {
 	defer l.Close()
 	tick := time.NewTicker(redraw)
 	defer tick.Stop()
