@@ -134,8 +134,8 @@ func watchMeters(ctx context.Context, env *Env, b *bench.Bench, rq MetersRequest
 		if err != nil {
 			return err
 		}
-		defer restore()
-		keys, giveBack = k, restore
+		defer func() { giveBack() }()
+		keys, giveBack = k, sync.OnceFunc(restore)
 	}
 	live, long := keys != nil, rq.For
 	if long == 0 && !live {
@@ -162,7 +162,7 @@ func watchMeters(ctx context.Context, env *Env, b *bench.Bench, rq MetersRequest
 		}
 	}
 	ended := make(chan error, 1)
-	go func() { ended <- listen(listening, b, start, emit) }()
+	go func() { ended <- acquire.Listen(listening, Sources(b), start, emit) }()
 	var err error
 	if live {
 		err = showMeters(listening, screen.NewLive(rq.Draw, rq.Size, env.Color), keys, func(now float64) screen.Model {
