@@ -41,7 +41,7 @@ func MetersTable(w io.Writer, rows []MeterRow, style Style) error {
 	}
 	p.grid(grid{style: style, cols: []column{
 		{head: "role", cells: roles}, {head: "meter", cells: names, wrap: 12, rank: 2}, {head: "says", cells: texts, right: true}, {head: "state", cells: states, wrap: 12},
-		{head: "readings", unit: "1/s", cells: rates, right: true, rank: 1}, {head: "age", unit: "s", cells: ages, right: true, rank: 1}, {head: "line", cells: lines, rank: 3, wrap: 16},
+		{head: "readings", unit: "1/s", cells: rates, right: true, rank: 1}, {head: "age", unit: "s", cells: ages, right: true, rank: 1}, {head: "line", cells: lines, rank: 3},
 	}})
 	return p.err
 }

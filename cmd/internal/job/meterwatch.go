@@ -1,6 +1,7 @@
 package job
 
 import (
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -8,6 +9,7 @@ import (
 
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
+	"gatesill/acquire/port"
 	"gatesill/report"
 	"gatesill/report/screen"
 	"gatesill/store/record"
@@ -30,6 +32,7 @@ type watched struct {
 	bad       int // frames that could not be read
 	open      bool
 	err       error // of the line when it is not open
+	ended     bool  // the line was a recorded log and is at its end
 	lastBad   error
 	lastBadAt float64
 }
@@ -59,6 +62,8 @@ func (w *meterWatch) take(e acquire.Event) {
 		switch {
 		case e.Opened:
 			m.open, m.err = true, nil
+		case e.Lost && errors.Is(e.Err, port.ErrEnd):
+			m.open, m.ended = false, true
 		case e.Lost:
 			m.open, m.err = false, e.Err
 		case e.Err != nil:
@@ -102,7 +107,7 @@ func (m *watched) stale(now float64) bool {
 	if math.IsNaN(p) {
 		p = 0.5 // the slowest handheld of the usual ones
 	}
-	return m.has && now-m.last.At > max(2*p, leastSilence)
+	return m.has && !m.ended && now-m.last.At > max(2*p, leastSilence)
 }
 
 // state says in a few words what there is to say of a meter.
@@ -128,6 +133,8 @@ func (m *watched) state(now float64) string {
 		return "no number"
 	case m.lastBad != nil && now-m.lastBadAt < 2:
 		return "bad frames"
+	case m.ended:
+		return "end of log"
 	}
 	return stateOK
 }
