@@ -101,8 +101,9 @@ func largePart(values []Value, width int) ([]part, []Value) {
 		x := 0
 		for _, v := range values[:n] {
 			xs = append(xs, x)
-			// A place for the sign is kept, so that nothing moves when it comes.
-			room := f.width("-"+strings.TrimPrefix(large(v), "-")) + 1 + max(textWidth(clean(v.Unit)), 2)
+			// A place for the sign is kept, and for a number where there is a word
+			// yet, so that nothing moves when they come.
+			room := max(f.width("-"+strings.TrimPrefix(large(v), "-")), f.width("-0.000")) + 1 + max(textWidth(clean(v.Unit)), 2)
 			x += max(room, 16) + between
 		}
 		return xs, x-between <= width

@@ -5,68 +5,67 @@ import (
 
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
+	"gatesill/acquire/meter"
 )
 
-// roleUnit is the SI unit in which a role is read.
-func roleUnit(role string) string {
-	switch role {
-	case acquire.Current:
-		return "A"
-	case acquire.Temperature:
-		return "degC"
-	}
-	return "V"
-}
-
-// Sources are the lines of a bench as they are listened to: one for each address,
-// with the columns of its meters.
+// Sources are the lines of a bench as they are listened to: meters on one line are
+// the columns of one source. Meters without a line are left out.
 func Sources(b *bench.Bench) []acquire.Source {
 	var out []acquire.Source
-	at := map[string]int{}
-	units := map[string]map[int]string{}
-	for i, m := range b.Meters {
-		l := b.Lines[i]
+	at := map[string]int{} // source of each line
+	for i, l := range b.Lines {
 		if l.Path == "" {
 			continue
 		}
-		k, ok := at[l.Path]
-		if !ok {
+		k, known := at[l.Path]
+		if !known {
 			k = len(out)
-			at[l.Path], units[l.Path] = k, map[int]string{}
-			out = append(out, acquire.Source{Address: l.Path})
+			at[l.Path] = k
+			out = append(out, acquire.Source{
+				Address: l.Path, Settings: l.Settings, Speaks: l.Speaks, Setup: l.Setup, Ask: l.Ask, Every: l.Every.Or(0),
+				Options: meter.Options{Unit: columnUnits(b, l.Path), Separator: l.Separator, Decimal: l.Decimal},
+			})
 		}
-		s := &out[k]
-		s.Settings, s.Speaks, s.Ask = first(s.Settings, l.Settings), first(s.Speaks, l.Speaks), first(s.Ask, l.Ask)
-		s.Options.Separator, s.Options.Decimal = first(s.Options.Separator, l.Separator), first(s.Options.Decimal, l.Decimal)
-		if len(s.Setup) == 0 {
-			s.Setup = l.Setup
-		}
-		if s.Every == 0 {
-			s.Every = l.Every.Or(0)
-		}
-		s.Columns = append(s.Columns, acquire.SourceColumn{Column: l.Column, Role: m.Role, Meter: m.Name, Unit: roleUnit(m.Role)})
-		if l.Unit != "" {
-			units[l.Path][max(l.Column, 1)] = l.Unit
-		}
-		most := 0
-		for c := range units[l.Path] {
-			most = max(most, c)
-		}
-		list := make([]string, most)
-		for c, u := range units[l.Path] {
-			list[c-1] = u
-		}
-		s.Options.Unit = strings.Join(list, ",")
+		in := b.Meters[i]
+		out[k].Columns = append(out[k].Columns, acquire.SourceColumn{Column: l.Column, Role: in.Role, Meter: in.Name, Unit: bench.RoleUnit(in.Role)})
 	}
 	return out
 }
 
-// Timings says of every meter of a bench when it measures what it says.
+// columnUnits joins the units that the file gives to the columns of a line; "" when
+// it gives none.
+func columnUnits(b *bench.Bench, path string) string {
+	var units []string
+	for _, l := range b.Lines {
+		if l.Path != path || l.Unit == "" {
+			continue
+		}
+		for len(units) < l.Column {
+			units = append(units, "")
+		}
+		units[l.Column-1] = l.Unit
+	}
+	return strings.Join(units, ",")
+}
+
+// Timings are what the bench file says of when its meters measure, by role. A meter
+// of which it says nothing has the zero [acquire.Timing], but for how long a USB
+// adapter holds bytes back: that is taken for the worst that is usual.
 func Timings(b *bench.Bench) map[string]acquire.Timing {
 	out := map[string]acquire.Timing{}
-	for i, m := range b.Meters {
+	for i, in := range b.Meters {
 		l := b.Lines[i]
-		out[m.Role] = acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Or(0)}
+		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Or(0)}
+		for _, lead := range []string{"/dev/serial/", "/dev/ttyUSB", "COM"} {
+			if strings.HasPrefix(l.Path, lead) {
+				t.Jitter = adapterHold
+			}
+		}
+		out[in.Role] = t
 	}
 	return out
 }
+
+// adapterHold is how long USB serial adapters hold back bytes of a short message:
+// 16 ms is the usual setting of their timer. Common practice, no source.
+const adapterHold = 0.016
