@@ -122,9 +122,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error) {
 	rq := &w.rq
 	if !rq.Rehearsal {
-		b, err := bench.ReadFile(rq.Bench)
+		b, err := readBench(rq.Bench)
 		if err != nil {
-			return nil, failed("gatesill help bench-file shows every key; gatesill meters --write FILE makes one", "%w", err)
+			return nil, err
 		}
 		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
 			env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
