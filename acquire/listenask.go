@@ -105,9 +105,11 @@ func (l *listener) tick(c port.Conn, at time.Time) error {
 		return err
 	}
 	p.asked, p.at = true, at
-	if p.due = p.due.Add(time.Duration(l.Every * float64(time.Second))); p.due.Before(at) {
-		p.due = at // late by a whole period: from now on
+	every := time.Duration(l.Every * float64(time.Second))
+	if p.due.Add(every).Before(at) { // the first, or late by a whole period: from now on
+		p.due = at
 	}
+	p.due = p.due.Add(every)
 	return port.Expect(c, l.timeout())
 }
 
