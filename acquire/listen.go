@@ -119,6 +119,7 @@ type listener struct {
 	buf      []byte
 	chunks   []listenChunk // what buf came in by
 	last     time.Time     // when bytes came last
+	floor    time.Time     // before which no further frame began
 	cut      bool          // up to the first end of a line, its beginning may be missing
 	garbage  int           // bytes since the last frame that belonged to none
 	poll     listenPoll

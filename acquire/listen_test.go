@@ -38,6 +38,21 @@ func TestListenTimes(t *testing.T) {
 	r.expect("its rest", "2995.8ms gate=3.012V/0.001")
 }
 
+// Times do not go back: a Read that was held up brings less than the next, at once.
+func TestListenTimesGoForward(t *testing.T) {
+	r := newRig(t, Source{Columns: gate, Speaks: "fs9721"})
+	r.open(0)
+	f := r.frame("fs9721", volts(3.012))
+	r.bytes(10, f) // cannot have begun before the line was open
+	r.bytes(1000, f)
+	g := r.frame("fs9721", volts(3.014))
+	r.bytes(1500, g[:2])
+	r.bytes(1501, append(append([]byte{}, g[2:]...), r.frame("fs9721", volts(3.013))...))
+	r.bytes(1502, append(append([]byte{}, f...), f...))
+	r.expect("order", "0.0ms opened; 0.0ms gate=3.012V/0.001; 941.7ms gate=3.012V/0.001; 1491.7ms gate=3.014V/0.001; "+
+		"1491.7ms gate=3.013V/0.001; 1491.7ms gate=3.012V/0.001; 1491.7ms gate=3.012V/0.001(repeat)")
+}
+
 func TestListenWithoutWireTime(t *testing.T) {
 	r := newRig(t, Source{Columns: gate, Speaks: "fs9721"})
 	r.c.byteTime = 0 // a socket

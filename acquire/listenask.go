@@ -104,7 +104,7 @@ func (l *listener) tick(c port.Conn, at time.Time) error {
 	if err := send(c, string(l.question)); err != nil {
 		return err
 	}
-	p.asked, p.at = true, at
+	p.asked, p.at, l.floor = true, at, at
 	every := time.Duration(l.Every * float64(time.Second))
 	if p.due.Add(every).Before(at) { // the first, or late by a whole period: from now on
 		p.due = at

@@ -112,7 +112,6 @@ type instrument struct {
 	queue   []string
 	refuses map[string]string // line -> error
 	forever string            // reported again and again
-	clears  bool
 }
 
 func (i *instrument) answer(sent string) string {
