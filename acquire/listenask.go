@@ -172,7 +172,7 @@ func (l *listener) setUp(c port.Conn) error {
 			if remote && (!cleared || e.code == -113) || known[e.code] {
 				continue
 			}
-			return fmt.Errorf("%s: set-up line %d, %q: %w: %s", l.Address, i+1, line, ErrRefused, e.text)
+			return fmt.Errorf("%s: set-up line %d, %q: %w: %s", l.Address, i+1, line, ErrSetUp, e.text)
 		}
 	}
 	return nil
@@ -241,7 +241,7 @@ func (t *talk) errors() ([]instrumentError, error) {
 		code, err := strconv.Atoi(strings.TrimPrefix(strings.TrimSpace(number), "+"))
 		switch {
 		case err != nil:
-			return nil, fmt.Errorf("%w: %s was answered by %.60q", ErrRefused, question, text)
+			return nil, fmt.Errorf("%w: %s was answered by %.60q", ErrSetUp, question, text)
 		case code == 0:
 			return list, nil
 		}
