@@ -34,8 +34,9 @@ func TestListenSocket(t *testing.T) {
 					break
 				}
 				switch strings.TrimSpace(line) {
-				case "CONF:VOLT:DC 10":
+				case "CONF:VOLT:DC 10;*OPC?":
 					setUps.Add(1)
+					fmt.Fprint(c, "1\n")
 				case "SYST:ERR?":
 					fmt.Fprint(c, "0,\"No error\"\n")
 				case "READ?":
