@@ -4,6 +4,7 @@ import (
 	"context"
 	"encoding/json"
 	"errors"
+	"flag"
 	"fmt"
 	"os"
 	"os/signal"
@@ -29,6 +30,8 @@ func TestMain(m *testing.M) {
 	case "measure":
 		os.Exit(measure())
 	}
+	flag.Parse()
+	flag.Set("test.parallel", "16") // these tests wait far more than they compute
 	os.Exit(m.Run())
 }
 

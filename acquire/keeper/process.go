@@ -283,8 +283,12 @@ func (k *keeper) setGate(v float64) error {
 	if !(math.Abs(v) <= k.cfg.MaxVgs) {
 		return fmt.Errorf("%w: %g V, and at most %g V is allowed", ErrTooHigh, v, k.cfg.MaxVgs)
 	}
-	if _, err := k.gate.setting(v); err != nil {
+	setting, err := k.gate.setting(v)
+	if err != nil {
 		return fmt.Errorf("%w: %w", ErrTooHigh, err)
+	}
+	if sent, err := k.gate.cmd.sent("set", setting); err != nil || math.Abs(sent) > k.cfg.MaxVgs+1e-6 {
+		return fmt.Errorf("%w: %g V would be sent as %g V, and at most %g V is allowed", ErrTooHigh, setting, sent, k.cfg.MaxVgs)
 	}
 	before := k.set
 	k.set = v

@@ -84,19 +84,71 @@ func TestNoSetReachesTheSupplyAboveTheLimit(t *testing.T) {
 	}
 }
 
-func TestRefusedSetLeavesTheDecisionToTheProgram(t *testing.T) {
+func TestRoundingDoesNotPassTheLimit(t *testing.T) {
 	t.Parallel()
 	gate, _ := pair()
-	gate.greatest = 5
-	r := started(t, gateOnly(), gate)
-	r.done(order{Do: doGate, V: 2})
-	a := r.ask(order{Do: doGate, V: 6})
-	if a.Kind != "refused" || !strings.Contains(a.Error, "out of range") {
-		t.Fatalf("%+v", a)
+	c := gateOnly()
+	c.MaxVgs = 3.06
+	c.Gate.Commands = map[string]string{"set": "VOLT %.1f", "on": "OUTP ON", "off": "OUTP OFF", "read": "MEAS:VOLT?", "limit": "CURR {v}"}
+	r := started(t, c, gate)
+	if a := r.ask(order{Do: doGate, V: 3.06}); a.Kind != "high" || gate.state().highest != 0 {
+		t.Errorf("%+v, gate %+v", a, gate.state())
 	}
-	time.Sleep(2 * hurried.poll) // a poll finds it where it was
-	if a := r.done(order{Do: doStatus}); a.Off != nil || *a.V != 2 {
-		t.Errorf("%+v", a)
+	r.done(order{Do: doGate, V: 3.04})
+	if g := gate.state(); g.volts != 3 {
+		t.Errorf("gate %+v", g)
+	}
+}
+
+// A supply of another language is sent its own templates and nothing else.
+func TestOwnLanguage(t *testing.T) {
+	t.Parallel()
+	gate, _ := pair()
+	c := gateOnly()
+	c.Bleed = true
+	c.Gate.Limit = 0
+	c.Gate.Commands = map[string]string{"set": "VOLT +{v}", "on": "OUTP ON", "off": "OUTP OFF", "read": "MEAS:VOLT?"}
+	r := started(t, c, gate)
+	r.done(order{Do: doGate, V: 2})
+	a := r.done(order{Do: doBye})
+	wantOff(t, a.Off, drainFixed, 0, false)
+	for _, s := range gate.notes.all() {
+		head, _, _ := strings.Cut(s.text, " ")
+		if head != "VOLT" && head != "OUTP" && head != "MEAS:VOLT?" {
+			t.Errorf("it was sent %q", s.text)
+		}
+	}
+}
+
+func TestWatchdogOfTheSupply(t *testing.T) {
+	t.Parallel()
+	gate, _ := pair()
+	c := gateOnly()
+	c.Gate.Commands = map[string]string{"watchdog": "OUTP:WDOG 2"}
+	r := newRig(t, c, gate)
+	if a := r.next(); a.Kind != "config" || !strings.Contains(a.Error, "undefined header") {
+		t.Errorf("a supply without one: %+v", a) // the model has none
+	}
+	if w, on := gate.notes.first("gate", "OUTP:WDOG 2", 0), gate.notes.first("gate", "OUTP ON", 0); w < 0 || on >= 0 {
+		t.Errorf("%s", gate.notes)
+	}
+}
+
+func TestRefusedSetLeavesTheDecisionToTheProgram(t *testing.T) {
+	t.Parallel()
+	for _, drops := range []bool{false, true} {
+		gate, _ := pair()
+		gate.greatest, gate.drops = 5, drops
+		r := started(t, gateOnly(), gate)
+		r.done(order{Do: doGate, V: 2})
+		a := r.ask(order{Do: doGate, V: 6})
+		if a.Kind != "refused" || !strings.Contains(a.Error, "out of range") {
+			t.Fatalf("drops %v: %+v", drops, a)
+		}
+		time.Sleep(2 * hurried.poll) // a poll finds it where it was
+		if a := r.done(order{Do: doStatus}); a.Off != nil || *a.V != 2 {
+			t.Errorf("drops %v: %+v", drops, a)
+		}
 	}
 }
 
