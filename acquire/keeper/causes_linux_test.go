@@ -173,6 +173,16 @@ var causes = []struct {
 	do    func(s *scene) time.Time
 }{
 	{"limit", 0, 20 * time.Millisecond, func(s *scene) time.Time { s.frame("2.5"); return s.lastFrame() }},
+	// The supply is busy with an order and needs 30 ms for each answer.
+	{"limit, busy", 0, 60 * time.Millisecond, func(s *scene) time.Time {
+		s.gate.mu.Lock()
+		s.gate.slow = 30 * time.Millisecond
+		s.gate.mu.Unlock()
+		s.frame("busy")
+		time.Sleep(200 * time.Millisecond)
+		s.frame("2.5")
+		return s.lastFrame()
+	}},
 	{"SIGINT", 0, 20 * time.Millisecond, func(s *scene) time.Time { return s.signal(syscall.SIGINT) }},
 	{"SIGTERM", 0, 20 * time.Millisecond, func(s *scene) time.Time { return s.signal(syscall.SIGTERM) }},
 	{"SIGKILL", 0, 20 * time.Millisecond, func(s *scene) time.Time { return s.signal(syscall.SIGKILL) }},
@@ -243,6 +253,6 @@ func TestTimeToOff(t *testing.T) {
 		if median > c.limit+c.goal {
 			verdict = "NOT REACHED"
 		}
-		fmt.Printf("%-16s %6d %9.0f %9.1f %9.1f  %.0f %s\n", strings.ReplaceAll(c.name, " ", "-"), trials, ms(c.limit), ms(median), ms(took[trials-1]), ms(c.limit+c.goal), verdict)
+		fmt.Printf("%-16s %6d %9.0f %9.1f %9.1f  %.0f %s\n", strings.NewReplacer(",", "", " ", "-").Replace(c.name), trials, ms(c.limit), ms(median), ms(took[trials-1]), ms(c.limit+c.goal), verdict)
 	}
 }

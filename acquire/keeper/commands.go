@@ -29,7 +29,9 @@ var standard = commands{
 	"on_query":    "OUTP?",
 	"says_off":    "0", // the answer to on_query of an output that is off; no command
 	"read":        "MEAS:VOLT?",
-	"watchdog":    "", // sent once at the start; the keeper speaks to each supply twice a second
+	// The supply's own, sent once at the start: it has to be content with being spoken
+	// to twice a second. In the off state the keeper is silent, and it may open the gate.
+	"watchdog": "",
 }
 
 // verbs are the templates that take one value, and how it may be written.

@@ -11,13 +11,14 @@ import (
 // the gate's off voltage can do no harm, a gate left where it is can.
 const (
 	drainFirst  = 150 * time.Millisecond
-	commandTime = 400 * time.Millisecond // of a command that answers; then its connection is given up
+	commandTime = 400 * time.Millisecond // of a command, growing with each try; then its connection is given up
 	proofTime   = 6 * time.Second        // of reading back
 )
 
 // goal is one outlet on its way off.
 type goal struct {
 	o       *outlet
+	written bool // the command of this try went out
 	reached bool
 	v       float64 // voltage read back, NaN: not read
 	last    error   // what kept the last try from its goal
@@ -47,7 +48,7 @@ func (k *keeper) goOff(c cause) OffReport {
 	for try, pause := range k.lim.pauses {
 		time.Sleep(pause)
 		t.command(try)
-		t.prove()
+		t.prove(try)
 		if t.gate.reached && (t.drain == nil || t.drain.reached) {
 			break
 		}
@@ -103,7 +104,7 @@ func (t *trip) command(try int) {
 		drain = d.o.line.begin(nil, func(k *talk) (float64, error) { return d.o.commandOff(k, try) })
 		select {
 		case r := <-drain:
-			t.noted(d.o, r)
+			t.noted(d, r)
 			drainDone = true
 		case <-time.After(drainFirst):
 		}
@@ -111,35 +112,35 @@ func (t *trip) command(try int) {
 	if g := t.gate; !g.reached && g.o.known {
 		gate = g.o.line.begin(nil, func(k *talk) (float64, error) { return g.o.commandGate(k, t.k.cfg.OffVoltage) })
 	}
-	left := func() time.Duration { return max(commandTime-time.Since(start), time.Millisecond) }
+	limit := commandTime * time.Duration(1+2*try) // a new connection takes its time
+	left := func() time.Duration { return max(limit-time.Since(start), time.Millisecond) }
 	if drain != nil && !drainDone && (gate == nil || t.drain.o.line != t.gate.o.line) {
 		// Two lines: neither waits for the other longer than its own limit.
-		defer func() { t.await(t.drain.o, drain, left()) }()
+		defer func() { t.await(t.drain, drain, left()) }()
 	} else if drain != nil && !drainDone {
-		t.await(t.drain.o, drain, left())
-		start = time.Now()
+		t.await(t.drain, drain, left())
 	}
 	if gate != nil {
-		start = time.Now()
-		t.await(t.gate.o, gate, commandTime)
+		t.await(t.gate, gate, limit)
 	}
 }
 
-func (t *trip) await(o *outlet, done <-chan result, limit time.Duration) {
+func (t *trip) await(g *goal, done <-chan result, limit time.Duration) {
 	timer := time.NewTimer(limit)
 	defer timer.Stop()
 	select {
 	case r := <-done:
-		t.noted(o, r)
+		t.noted(g, r)
 	case <-timer.C:
-		o.line.giveUp()
-		t.fault(o, fmt.Errorf("%w: %s: hung for %v; connection given up", ErrLine, o, limit.Round(time.Millisecond)))
+		g.o.line.giveUp()
+		t.noted(g, result{math.NaN(), fmt.Errorf("%w: %s: hung for %v; connection given up", ErrLine, g.o, limit.Round(time.Millisecond))})
 	}
 }
 
-func (t *trip) noted(o *outlet, r result) {
-	if r.err != nil {
-		t.fault(o, r.err)
+func (t *trip) noted(g *goal, r result) {
+	g.written = !errors.Is(r.err, ErrLine) || errors.Is(r.err, errNoReply)
+	if g.last = r.err; r.err != nil {
+		t.fault(g.o, r.err)
 		return
 	}
 	t.taken = time.Now()
@@ -184,17 +185,18 @@ func (o *outlet) commandGate(t *talk, v float64) (float64, error) {
 	return 0, o.press(t, "set", setting)
 }
 
-// prove reads both supplies back.
-func (t *trip) prove() {
+// prove reads both supplies back. Where the command did not even go out there is
+// nothing to prove, and the next try comes the sooner.
+func (t *trip) prove(try int) {
 	var drain, gate <-chan result
 	if d := t.drain; d != nil && !d.reached {
-		if d.o.known {
-			drain = d.o.line.begin(nil, d.proveDrain)
-		} else {
+		if !d.o.known {
 			d.last = fmt.Errorf("%s was never spoken to", d.o)
+		} else if d.written {
+			drain = d.o.line.begin(nil, func(k *talk) (float64, error) { return d.o.proveDrain(k, try) })
 		}
 	}
-	if g := t.gate; !g.reached && g.o.known {
+	if g := t.gate; !g.reached && g.o.known && g.written {
 		gate = g.o.line.begin(nil, func(k *talk) (float64, error) { return g.o.proveGate(k, t.k.cfg.OffVoltage) })
 	}
 	limit := time.After(proofTime)
@@ -231,9 +233,8 @@ type otherwise struct{ text string }
 func (e *otherwise) Error() string { return e.text }
 
 // proveDrain asks whether the output is off, and where that cannot be asked or is
-// denied, whether its voltage has gone.
-func (g *goal) proveDrain(t *talk) (float64, error) {
-	o := g.o
+// denied a second time, whether its voltage has gone.
+func (o *outlet) proveDrain(t *talk, try int) (float64, error) {
 	if err := t.clearLeftover(o.cmd["identify"], o.lim.reply); err != nil {
 		return math.NaN(), err
 	}
@@ -251,6 +252,9 @@ func (g *goal) proveDrain(t *talk) (float64, error) {
 			v = math.NaN()
 		}
 		return v, nil
+	}
+	if can && try == 0 { // the command may have been lost: no waiting
+		return math.NaN(), errors.Join(fmt.Errorf("%w: %s: its output is still on after %q", ErrReadBack, o, o.cmd["off"]), refused)
 	}
 	var v float64
 	for end := time.Now().Add(o.lim.settle / 2); ; time.Sleep(20 * time.Millisecond) {
@@ -282,6 +286,13 @@ func (o *outlet) proveGate(t *talk, v float64) (float64, error) {
 	refused := o.faults(t, o.lim.reply)
 	if refused != nil && !errors.Is(refused, ErrRefused) {
 		return math.NaN(), refused
+	}
+	if o.cmd["set_query"] != "" { // says at once what the voltage may say late
+		setting, _ := o.setting(v)
+		if err := o.compare(t, "set_query", "V", setting, 0.02, 0.01); err != nil {
+			got, _ := o.read(t, o.lim.reply)
+			return got, errors.Join(err, refused)
+		}
 	}
 	got, err := o.settle(t, v, o.lim.settle/2)
 	if err == nil {

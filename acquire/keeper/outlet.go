@@ -27,7 +27,7 @@ type limits struct {
 
 var usual = limits{
 	reply: 1500 * time.Millisecond, settle: time.Second, poll: 500 * time.Millisecond,
-	pauses: []time.Duration{0, 100 * time.Millisecond, 500 * time.Millisecond, 2 * time.Second},
+	pauses: []time.Duration{0, 20 * time.Millisecond, 500 * time.Millisecond, 2 * time.Second},
 }
 
 func near(got, want float64) bool {

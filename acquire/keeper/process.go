@@ -274,6 +274,9 @@ func (k *keeper) obey(o order) {
 	default:
 		err = fmt.Errorf("%w (%s)", ErrOff, k.off.Reason)
 	}
+	if errors.Is(err, errStopped) {
+		err = fmt.Errorf("%w: %w", ErrOff, err)
+	}
 	a.fail(err)
 	a.V, a.Drain, a.Off = finite(k.read), k.drainOn, k.off
 	k.tell(a)

@@ -355,7 +355,7 @@ func TestOffOrderBreaksInOnASlowSupply(t *testing.T) {
 	from := len(gate.notes.all())
 	asked := time.Now()
 	r.write(order{Do: doOff, Reason: "limit", ID: 1001})
-	if a := r.next(); a.ID != 1000 || a.Error == "" {
+	if a := r.next(); a.ID != 1000 || a.Kind != "off" {
 		t.Errorf("broken-off order: %+v", a)
 	}
 	a := r.next()
