@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"time"
 )
 
@@ -84,14 +85,10 @@ func (t *trip) drainWords() string {
 }
 
 func (t *trip) fault(o *outlet, err error) {
-	s := err.Error()
-	for _, e := range t.errs {
-		if e == s {
-			return
-		}
+	if s := err.Error(); !slices.Contains(t.errs, s) {
+		t.errs = append(t.errs, s)
+		t.k.log.note("%s: %v", o, err)
 	}
-	t.errs = append(t.errs, s)
-	t.k.log.note("%s: %v", o, err)
 }
 
 // command sends the orders themselves: the drain supply's first, the gate's as soon as
@@ -301,18 +298,19 @@ func (o *outlet) proveGate(t *talk, v float64) (float64, error) {
 	return got, errors.Join(err, refused)
 }
 
-// mayOpen tells whether the gate's output may be opened. The gate of a depletion part
-// then goes to 0 V, where the part conducts: its drain supply has to be off.
+// mayOpen tells whether the gate's output may be opened. It then goes to 0 V, where a
+// depletion part conducts: a drain supply that can be switched has to be off. Only the
+// gate of another part that could not be brought to its off voltage is opened anyway.
 func (t *trip) mayOpen() bool {
 	if !t.cause.gone && !t.k.cfg.Bleed || !t.gate.o.known {
 		return false
 	}
-	return !t.k.cfg.Depletion || t.drain != nil && t.drain.reached
+	return t.drain == nil || t.drain.reached || !t.k.cfg.Depletion && !t.gate.reached
 }
 
 func (t *trip) open() {
 	o := t.gate.o
-	_, err := o.line.do(proofTime, nil, func(k *talk) (float64, error) {
+	v, err := o.line.do(proofTime, nil, func(k *talk) (float64, error) {
 		if err := o.say(k, "off", o.lim.reply); err != nil {
 			return 0, err
 		}
@@ -323,13 +321,23 @@ func (t *trip) open() {
 		if err == nil && can && !off {
 			err = fmt.Errorf("%w: %s: its output is still on after %q", ErrReadBack, o, o.cmd["off"])
 		}
-		return 0, err
+		if err != nil {
+			return 0, err
+		}
+		v, err := o.read(k, o.lim.reply)
+		if err != nil {
+			v = math.NaN() // it is open nevertheless
+		}
+		return v, nil
 	})
 	if err != nil {
 		t.fault(o, err)
 		return
 	}
 	t.opened, t.taken = true, time.Now()
+	if !t.gate.reached { // else what it had when it was still driven says more
+		t.gate.v = v
+	}
 }
 
 // offAgain is an order to go off in the off state: what was not reached is tried once
@@ -339,5 +347,6 @@ func (k *keeper) offAgain(o order) {
 		return
 	}
 	r := k.goOff(cause{reason: k.off.Reason, at: time.Now(), order: o.ID, gone: o.Gone})
+	r.Errors = append(slices.Clone(k.off.Errors), r.Errors...)
 	k.off = &r
 }
