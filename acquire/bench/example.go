@@ -103,9 +103,9 @@ output = 2
 current_limit = "1 A"
 voltage = "12 V"           # when it is on
 
-  [supply.commands]        # only where they are not the usual ones; {v} is the value
-  set = "VSET2:{v}"
-  limit = "ISET2:{v}"
+  [supply.commands]        # only where they are not the usual ones; %g is the value
+  set = "VSET2:%g"
+  limit = "ISET2:%g"
   on = "OUT2:1"
   off = "OUT2:0"
   read = "VOUT2?"

@@ -141,14 +141,11 @@ func (p *parser) shareLines() {
 		if !known {
 			continue
 		}
-		if f.Length > 0 && l.Column > 1 {
+		if !f.Lines && l.Column > 1 {
 			p.fail(key+".column", "%d, but %s says one value at a time", l.Column, l.Speaks)
 		}
 		if l.Every.IsKnown() && l.Ask == "" && f.Ask == "" {
 			p.fail(key+".every", "without ask: %s speaks by itself unless it is asked", l.Speaks)
-		}
-		if needsAsk(f) && l.Ask == "" {
-			p.fail(key+".ask", "missing: %s says nothing unless it is asked", l.Speaks)
 		}
 		for j := range i {
 			if lines[j].Path == l.Path && l.Path != "" && lines[j].Column == l.Column {

@@ -197,9 +197,6 @@ func (p *parser) limits() {
 // drives are the two things that a supply can drive.
 var drives = []string{"gate", "drain"}
 
-// commandNames are the commands that a supply's templates may replace.
-var commandNames = []string{"set", "limit", "on", "off", "read", "identify", "errors"}
-
 func (p *parser) supplies() {
 	b := p.bench
 	taken := map[string]int{}
@@ -241,8 +238,8 @@ func (p *parser) supplies() {
 			p.fail(key+".voltage", "only for the drain supply: the gate's voltage goes with the sweep")
 		}
 		for _, name := range slices.Sorted(maps.Keys(s.Commands)) {
-			if !slices.Contains(commandNames, name) {
-				p.fail(key+".commands."+name, "no such command, must be one of %s", strings.Join(commandNames, ", "))
+			if !slices.Contains(commandNames(), name) {
+				p.fail(key+".commands."+name, "no such command, must be one of %s", strings.Join(commandNames(), ", "))
 			}
 		}
 		for j, m := range b.Lines {

@@ -1,6 +1,7 @@
 package bench
 
 import (
+	"cmp"
 	"fmt"
 	"slices"
 	"strconv"
@@ -58,8 +59,8 @@ const None = "none"
 const skip = "skip"
 
 // Next gives the question that comes after the answers, and false when all is
-// known. It asks of every line which meter is on it, then of the circuit, then
-// of the limits.
+// known. It asks of every line which meter is on it, then for lines that were not
+// found, then of the circuit and of the limits.
 func Next(found []Found, a Answers) (Question, bool) {
 	for _, q := range questions(found, a) {
 		if _, ok := a[q.Key]; !ok {
@@ -73,10 +74,56 @@ func Next(found []Found, a Answers) (Question, bool) {
 func questions(found []Found, a Answers) []Question {
 	qs := []Question{{Key: "name", Text: "What is this bench called?", Default: "bench"}}
 	taken := map[string]bool{}
-	for i, f := range found {
+	all := allLines(found, a)
+	for i, f := range all {
+		if i >= len(found) {
+			qs = append(qs, otherLine(i, all[:i]))
+		}
 		qs = append(qs, lineQuestions(i, f, a, taken)...)
 	}
+	if len(all) < maxLines {
+		qs = append(qs, otherLine(len(all), all))
+	}
 	return append(qs, circuitQuestions(a, taken["current"])...)
+}
+
+// maxLines is far above any bench.
+const maxLines = 32
+
+// allLines are the lines found, and behind them those that were named.
+func allLines(found []Found, a Answers) []Found {
+	all := slices.Clone(found)
+	for {
+		path := a[otherKey(len(all))]
+		if path == "" || path == None {
+			return all
+		}
+		all = append(all, Found{Path: path})
+	}
+}
+
+func otherKey(i int) string { return fmt.Sprintf("line %d", i+1) }
+
+// otherLine asks for a line that was not found by itself.
+func otherLine(i int, known []Found) Question {
+	text := "Another line, such as tcp:192.0.2.7:5025?"
+	if len(known) == 0 {
+		text = "Nothing is plugged in. On which line is a meter, such as tcp:192.0.2.7:5025?"
+	}
+	return Question{Key: otherKey(i), Text: text, Default: None, check: func(s string) (string, error) {
+		if s == None {
+			return s, nil
+		}
+		if slices.ContainsFunc(known, func(f Found) bool { return f.Path == s }) {
+			return "", fmt.Errorf("%s was asked about already", s)
+		}
+		for _, lead := range []string{"tcp:", "usbtmc:", "log:", "/", "COM"} {
+			if rest, ok := strings.CutPrefix(s, lead); ok && rest != "" {
+				return s, nil
+			}
+		}
+		return "", fmt.Errorf("%q is no line: a path, tcp:HOST:PORT, usbtmc:PATH or log:PATH", s)
+	}}
 }
 
 // lineQuestions are those of one line; roles that are given away are noted in
@@ -87,12 +134,12 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 		on += " (" + f.Text + ")"
 	}
 	var help []string
-	for _, k := range formats {
-		help = append(help, fmt.Sprintf("  %-10s %s", k.Name, k.Text))
+	for l := range strings.Lines(meter.Help()) {
+		help = append(help, "  "+strings.TrimRight(l, "\n"))
 	}
 	key := func(what string) string { return fmt.Sprintf("line %d: %s", i+1, what) }
 	qs := []Question{{
-		Key: key("speaks"), Text: "How does the meter on " + on + " speak?", Help: append(help, "  skip       no meter, or not for this bench"),
+		Key: key("speaks"), Text: "How does the meter on " + on + " speak?", Help: append(help, "  skip                     no meter, or not for this bench"),
 		Choices: append(formatNames(), skip),
 	}}
 	format, ok := findFormat(a[key("speaks")])
@@ -100,7 +147,7 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 		return qs
 	}
 	if serial(f.Path) {
-		qs = append(qs, Question{Key: key("settings"), Text: "Settings of this line, such as 2400 8N1?", Default: format.Settings, check: func(s string) (string, error) {
+		qs = append(qs, Question{Key: key("settings"), Text: "Settings of this line, such as 2400 8N1?", Default: cmp.Or(format.Settings, "9600 8N1"), check: func(s string) (string, error) {
 			_, err := port.ParseSettings(s)
 			return s, err
 		}})
@@ -210,11 +257,11 @@ func number(unit string, above bool) func(string) (string, error) {
 }
 
 // hasColumns tells whether what a format says at once can be several values.
-func hasColumns(f meter.Format) bool { return f.Name == "text" }
+func hasColumns(f meter.Format) bool { return f.Lines }
 
 // serial tells whether a line has settings.
 func serial(path string) bool {
-	return !strings.Contains(path, "usbtmc") && !strings.HasPrefix(path, "tcp:") && !strings.HasPrefix(path, "log:")
+	return !strings.HasPrefix(path, "usbtmc:") && !strings.HasPrefix(path, "/dev/usbtmc") && !strings.HasPrefix(path, "tcp:") && !strings.HasPrefix(path, "log:")
 }
 
 // unitOf tells whether text is a unit, with or without prefix.
@@ -243,7 +290,7 @@ func Write(found []Found, a Answers) string {
 	put("vds", a["vds limit"])
 	put("id", a["id"])
 	put("pd", a["pd"])
-	for i, f := range found {
+	for i, f := range allLines(found, a) {
 		key := func(what string) string { return fmt.Sprintf("line %d: %s", i+1, what) }
 		format, ok := findFormat(a[key("speaks")])
 		if !ok {

@@ -34,7 +34,7 @@ func TestWrite(t *testing.T) {
 	answers := map[string]string{
 		"name": `the "attic" \bench`, "line 1: speaks": "fs9721", "line 1: role 1": "gate", "line 1: name 1": "", "line 1: isolated": "yes",
 		"line 2: speaks": "skip", "line 3: speaks": "text", "line 3: settings": "115200 8N1", "line 3: columns": "3", "line 3: role 1": "load", "line 3: role 2": "none",
-		"line 3: role 3": "current", "line 3: unit 3": "mA", "line 3: isolated": "no", "kind": "load", "rl": "10 ohm", "rl_rating": "50 W", "vdd": "12", "vgs": "10 V", "pd": "none",
+		"line 3: role 3": "current", "line 3: unit 3": "mA", "line 3: isolated": "no", "line 4": "tcp:192.0.2.7", "line 4: speaks": "scpi", "line 4: role 1": "drain", "line 4: isolated": "unsure", "kind": "load", "rl": "10 ohm", "rl_rating": "50 W", "vdd": "12", "vgs": "10 V", "pd": "none",
 	}
 	a := answerAll(t, found, func(q Question) string { return answers[q.Key] })
 	b, err := Parse([]byte(Write(found, a)))
@@ -44,7 +44,9 @@ func TestWrite(t *testing.T) {
 	require.Equal(t, record.Known(12), b.Given.VDD)
 	require.Equal(t, record.Known(10), b.Limits.Vgs)
 	require.False(t, b.Limits.PD.IsKnown())
-	require.Len(t, b.Meters, 3)
+	require.Len(t, b.Meters, 4)
+	require.Equal(t, []any{"tcp:192.0.2.7", "", "V"}, []any{b.Lines[3].Path, b.Lines[3].Settings, b.Lines[3].Unit})
+	require.Nil(t, b.Meters[3].Isolated)
 	require.Equal(t, "gate meter", b.Meters[0].Name)
 	require.True(t, *b.Meters[0].Isolated)
 	require.Equal(t, "2400 8N1", b.Lines[0].Settings)
@@ -57,7 +59,7 @@ func TestAnswersAreChecked(t *testing.T) {
 	a := Answers{}
 	wrong := map[string]string{
 		"line 1: speaks": "morse", "line 1: settings": "fast", "line 1: columns": "0", "line 1: role 1": "grid", "line 1: unit 1": "mA", "line 1: isolated": "maybe",
-		"kind": "drain", "rl": "10 V", "rl_rating": "0", "vdd": "twelve", "vgs": "-1", "bleed": "0",
+		"line 2": "192.0.2.7:5025", "kind": "drain", "rl": "10 V", "rl_rating": "0", "vdd": "twelve", "vgs": "-1", "bleed": "0",
 	}
 	right := map[string]string{"line 1: speaks": "text", "line 1: settings": "9600 8N1", "line 1: role 1": "gate", "line 1: isolated": "unsure", "kind": "load", "rl": "1k", "vdd": "9 V"}
 	for q, more := Next(found, a); more; q, more = Next(found, a) {
@@ -87,6 +89,8 @@ func TestWrittenParses(t *testing.T) {
 			switch {
 			case len(q.Choices) > 0:
 				return rapid.SampledFrom(q.Choices).Draw(t, q.Key)
+			case strings.Count(q.Key, " ") == 1 && strings.HasPrefix(q.Key, "line"):
+				return rapid.SampledFrom([]string{None, "tcp:h", "/dev/y", "COM3"}).Filter(func(s string) bool { _, err := q.Check(s); return err == nil }).Draw(t, q.Key)
 			case strings.Contains(q.Key, "name"):
 				return rapid.StringMatching(`[ -~µ\t"\\]*x`).Draw(t, q.Key)
 			case strings.Contains(q.Key, "columns"):

@@ -159,6 +159,11 @@ func (p *parser) word(w string) string {
 		p.sign = w
 		return ""
 	}
+	if len(p.readings) > p.from && !p.unit && p.sign == "" {
+		if _, ok := readUnit(w); ok { // before the words: nA is no NA
+			return p.setUnit(&p.readings[len(p.readings)-1], w)
+		}
+	}
 	if state, ok := stateWord(p.sign + w); ok {
 		r := p.add()
 		switch state {
@@ -179,11 +184,6 @@ func (p *parser) word(w string) string {
 	}
 	if p.sign != "" {
 		return "a sign without a number"
-	}
-	if len(p.readings) > p.from && !p.unit {
-		if _, ok := readUnit(w); ok {
-			return p.setUnit(&p.readings[len(p.readings)-1], w)
-		}
 	}
 	r := &p.pending
 	if len(p.readings) > p.from {

@@ -10,8 +10,8 @@ type shown struct {
 	value float64 // SI unit, whole counts
 	over  bool    // overload instead; value has the sign only
 	digit float64 // one count, SI unit
-	top   float64 // of its range, SI unit
 	unit  string
+	auto  bool
 	hold  bool
 }
 
@@ -50,7 +50,7 @@ const lostConversions = 2
 // shows something new; changed tells that the range was.
 func (c *channel) convert(x, t float64) (s shown, ok, changed bool) {
 	digit := c.Tops[c.at] / c.Counts
-	s = shown{digit: digit, top: c.Tops[c.at], unit: units[c.Role]}
+	s = shown{digit: digit, unit: units[c.Role], auto: c.auto}
 	if c.Counting {
 		s.value = float64(c.count%int64(c.Counts+1)) * digit
 		c.count++
@@ -94,7 +94,6 @@ func (c *channel) faulty(s shown, t float64) shown {
 	if t < c.scaled && !s.over {
 		s.value *= c.factor
 		s.digit *= c.factor
-		s.top *= c.factor
 	}
 	if t < c.overload {
 		s.over = true

@@ -11,11 +11,12 @@ import (
 // LineStatus is how a line stands.
 type LineStatus struct {
 	Path      string `json:"path"`      // of the pseudo-terminal now; "" unplugged
-	Open      bool   `json:"open"`      // somebody had it open when something was last sent
+	Open      bool   `json:"open"`      // somebody has it open
 	Frames    int    `json:"frames"`    // frames and replies of meters that were sent whole
 	Bytes     int    `json:"bytes"`     // sent, of everything
 	Unheard   int    `json:"unheard"`   // frames that nobody had the line open for
 	Overrun   int    `json:"overrun"`   // bytes lost because they were not read in time
+	Unsaid    int    `json:"unsaid"`    // readings that the format has no form for
 	Unplugged bool   `json:"unplugged"` // the adapter is away
 }
 
@@ -70,7 +71,10 @@ func (e *endpoint) pull() {
 
 // remove takes everything away for good.
 func (e *endpoint) remove() {
-	e.pull()
+	if e.tty != nil {
+		e.tty.close()
+		e.tty = nil
+	}
 	if e.spare != nil {
 		e.spare.close()
 	}

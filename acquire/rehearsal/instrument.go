@@ -36,7 +36,7 @@ type instrument struct {
 	start   float64  // of the conversion under way or next; +Inf none
 	nplc    float64  // s, integration that was commanded, 0 none
 	wrong   bool     // the function that was commanded is not what the leads are for
-	asked   bool     // a byte of a question came; the reply is the latest reading
+	unsaid  int      // frames that the format has no form for
 
 	latest []shown // of the last conversion that showed something
 	out    []Sent  // not yet due, ascending
@@ -97,7 +97,7 @@ func (i *instrument) work(now float64) {
 		if !ok || d > now+exact {
 			return
 		}
-		if b := i.console.run(max(d, 0)); b != nil {
+		if b := i.console.run(now); b != nil {
 			i.send(now, b, i.supply == nil)
 		}
 	}
@@ -130,7 +130,7 @@ func (i *instrument) converted(t float64) {
 		i.start = math.Inf(1)
 		i.latest = list
 		at := t + first.Processing + i.lag(t)
-		if b := i.console.answer(i.format.encode(list), at); b != nil {
+		if b := i.console.answer(i.format.reply(list), at); b != nil {
 			i.send(at, b, true)
 		}
 		return
@@ -147,7 +147,11 @@ func (i *instrument) converted(t float64) {
 	if i.format.ask != "" {
 		return // it waits until it is asked
 	}
-	b := []byte(i.format.encode(list))
+	b, err := i.format.encode(list)
+	if err != nil {
+		i.unsaid++
+		return
+	}
 	at := t + first.Processing + i.lag(t)
 	i.send(at, b, true)
 	if i.format.twice {
@@ -176,7 +180,11 @@ func (i *instrument) hear(b []byte, t float64) {
 		c.hear(b, t)
 		c.latency = usual
 	case i.format.ask != "" && strings.ContainsAny(string(b), i.format.ask) && len(i.latest) > 0:
-		i.send(t+i.channels[0].Processing, []byte(i.format.encode(i.latest)), true)
+		if reply, err := i.format.encode(i.latest); err == nil {
+			i.send(t+i.channels[0].Processing+i.lag(t), reply, true)
+		} else {
+			i.unsaid++
+		}
 	}
 }
 
@@ -245,7 +253,7 @@ func (i *instrument) do(header, args string, t float64) result {
 		if len(i.latest) == 0 {
 			return result{err: stale}
 		}
-		return say(i.format.encode(i.latest))
+		return say(i.format.reply(i.latest))
 	case spells(header, "MEASure[:SCALar]:"+kind+"[:DC]?"):
 		if r := configure(false); r.err != "" {
 			return r

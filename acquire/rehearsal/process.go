@@ -287,7 +287,10 @@ func (p *process) adapters() {
 func (p *process) status() Status {
 	s := Status{At: p.bench.now, CPU: cpuSeconds(), Lines: map[string]LineStatus{}}
 	for name, e := range p.ends {
-		s.Lines[name] = e.status
+		l := e.status
+		l.Open = e.tty != nil && e.tty.open()
+		l.Unsaid = p.bench.at(name).unsaid
+		s.Lines[name] = l
 	}
 	return s
 }

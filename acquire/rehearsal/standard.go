@@ -64,11 +64,11 @@ func Standard(kind string) (Config, error) {
 		load.Cycle, load.Lag, load.Percent, load.Plus, load.Gain = 0.25, 0.006, 0.5, 2, 0.9991
 		c.Meters = []Meter{gate, current, load}
 	case OneLine:
-		column := Meter{Line: "line", Speaks: "text", Settings: "115200 8N1", Counts: 32768, Noise: 0.4, Cycle: 0.05, Integration: 0.02, Processing: 0.001, LagU: 0.001, Percent: 0.1, Plus: 2}
+		column := Meter{Line: "line", Speaks: "text", Settings: "115200 8N1", Counts: 60000, Noise: 0.4, Cycle: 0.05, Integration: 0.02, Processing: 0.001, LagU: 0.001, Percent: 0.1, Plus: 2}
 		gate, current, load := column, column, column
-		gate.Role, gate.Tops = "gate", []float64{6.144}
-		current.Role, current.Tops, current.Burden = "current", []float64{1.28}, 0.1
-		load.Role, load.Tops = "load", []float64{16.384}
+		gate.Role, gate.Tops = "gate", []float64{6}
+		current.Role, current.Tops, current.Burden = "current", []float64{0.6}, 0.1
+		load.Role, load.Tops = "load", []float64{60}
 		c.Meters = []Meter{gate, current, load}
 	default:
 		return Config{}, fmt.Errorf("%w: no standard bench %q", ErrConfig, kind)

@@ -54,16 +54,29 @@ func (t *terminal) send(b []byte) (n int, open bool) {
 		return 0, false
 	}
 	c.Control(func(fd uintptr) {
-		p := []unix.PollFd{{Fd: int32(fd), Events: unix.POLLOUT}}
-		if _, err := unix.Poll(p, 0); err != nil && err != unix.EINTR || p[0].Revents&unix.POLLHUP != 0 {
+		if open = listened(fd); !open {
 			return
 		}
-		open = true
 		if n, err = unix.Write(int(fd), b); err != nil {
 			n = 0
 		}
 	})
 	return n, open
+}
+
+// open tells whether anybody has the line open.
+func (t *terminal) open() (open bool) {
+	if c, err := t.f.SyscallConn(); err == nil {
+		c.Control(func(fd uintptr) { open = listened(fd) })
+	}
+	return open
+}
+
+// listened asks the system; one that cannot tell counts as a yes.
+func listened(fd uintptr) bool {
+	p := []unix.PollFd{{Fd: int32(fd), Events: unix.POLLOUT}}
+	_, err := unix.Poll(p, 0)
+	return err != nil || p[0].Revents&unix.POLLHUP == 0
 }
 
 // apart starts a process in a group of its own, so that an interrupt from the

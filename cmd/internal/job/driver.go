@@ -24,6 +24,8 @@ type driver struct {
 	quit   chan struct{}
 	// Told gets what came of the orders; the loop reads it.
 	told chan driven
+
+	ended bool // the keeper has ended by itself
 }
 
 // driven is the outcome of one order.

@@ -28,6 +28,9 @@ type rehearsed struct {
 // handRate is how fast the simulated hand turns the knob, V/s.
 const handRate = 0.25
 
+// creepRate is how fast it goes with an eye on the current, V/s.
+const creepRate = 0.08
+
 // rehearse starts a simulated bench.
 func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
 	exe, err := os.Executable()
@@ -70,11 +73,27 @@ func (r *rehearsed) insert(device string) error {
 	return r.Insert(device)
 }
 
-// turn sends the simulated hand to a gate voltage.
-func (r *rehearsed) turn(v float64) error {
+// turn sends the simulated hand to a gate voltage, slowly where the current must
+// be watched; NaN lets it stop where it is.
+func (r *rehearsed) turn(v float64, creep bool) error {
+	if math.IsNaN(v) {
+		if math.IsNaN(r.aim) {
+			return nil
+		}
+		r.aim = v
+		t, err := r.Truth()
+		if err != nil {
+			return err
+		}
+		return r.Knob(t.Vg, 0)
+	}
 	if v == r.aim {
 		return nil
 	}
 	r.aim = v
-	return r.Knob(v, handRate)
+	rate := handRate
+	if creep {
+		rate = creepRate
+	}
+	return r.Knob(v, rate)
 }

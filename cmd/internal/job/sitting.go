@@ -254,8 +254,9 @@ func (s *sitting) event(kind, format string, args ...any) error {
 }
 
 // finish seals the sweep with its points; why is given when it is to be set
-// aside. Without points it is given up. It returns the sweep as it is kept.
-func (s *sitting) finish(ctx context.Context, points []acquire.Point, direction record.Direction, why string) (record.Sweep, error) {
+// aside; returned says that the last point was taken again at low power after the
+// sweep. Without points it is given up. It returns the sweep as it is kept.
+func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned bool, direction record.Direction, why string) (record.Sweep, error) {
 	sw := s.sweep
 	if err := s.live.Flush(); err != nil {
 		return *sw, storeFailure(err)
@@ -263,6 +264,9 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, direction 
 	s.sweep = nil
 	sw.Direction, sw.Instruments = direction, s.instruments()
 	sw.Columns, sw.Marks = acquire.Columns(points)
+	if c := sw.Column(record.Settled); c != nil && returned {
+		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
+	}
 	err := s.db.Update(ctx, func(tx *store.Tx) error {
 		if len(points) > 0 {
 			if err := tx.SealSweep(sw); err != nil {
