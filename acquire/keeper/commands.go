@@ -105,6 +105,8 @@ func checkTemplate(name, text string) error {
 	found := verb.FindAllStringSubmatch(text, -1)
 	want := verbs[name]
 	switch {
+	case strings.Count(text, "%") != len(found):
+		return fmt.Errorf("command %q: a %% that is no value: %q", name, text)
 	case want == "" && len(found) > 0:
 		return fmt.Errorf("command %q takes no value: %q", name, text)
 	case want != "" && name != "select" && len(found) != 1, len(found) > 1:

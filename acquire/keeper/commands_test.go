@@ -156,7 +156,7 @@ func FuzzOrder(f *testing.F) {
 }
 
 func FuzzTemplate(f *testing.F) {
-	for _, s := range []string{"VOLT %g", "U{v}", "V%05.2f", "%", "%%g", "%d%g", "VOLT %1000000g"} {
+	for _, s := range []string{"VOLT %g", "U{v}", "V%05.2f", "%", "%%g", "%d%g", "VOLT %1000000g", "%g%!"} {
 		f.Add(s, 3.25)
 	}
 	f.Fuzz(func(t *testing.T, text string, v float64) {
