@@ -15,8 +15,14 @@ var roleUnits = map[string]string{
 	"gate": "V", "current": "A", "load": "V", "drain": "V", "supply": "V", "temperature": "degC",
 }
 
+// RoleUnit is the SI unit of what a meter in a role reads, "" for what is no role.
+func RoleUnit(role string) string { return roleUnits[role] }
+
 // roles are the keys of roleUnits in the order they are spoken of.
 var roles = []string{"gate", "current", "load", "drain", "supply", "temperature"}
+
+// maxColumns is far above what a line of a bench holds.
+const maxColumns = 64
 
 func (p *parser) meters() {
 	b := p.bench
@@ -96,8 +102,8 @@ func (p *parser) line(key string, m *meterKeys, unit string) Line {
 		LagU:        p.notBelow(key+".lag_u", m.LagU, "s"),
 	}
 	if m.Column != nil {
-		if l.Column = *m.Column; l.Column < 1 {
-			p.fail(key+".column", "%d, columns are counted from 1", l.Column)
+		if l.Column = *m.Column; l.Column < 1 || l.Column > maxColumns {
+			p.fail(key+".column", "%d, columns are counted from 1, to %d at most", l.Column, maxColumns)
 		}
 	}
 	if unit != "" && m.Unit != "" {
@@ -141,7 +147,7 @@ func (p *parser) shareLines() {
 		if !known {
 			continue
 		}
-		if !f.Lines && l.Column > 1 {
+		if !hasColumns(f) && l.Column > 1 {
 			p.fail(key+".column", "%d, but %s says one value at a time", l.Column, l.Speaks)
 		}
 		if l.Every.IsKnown() && l.Ask == "" && f.Ask == "" {

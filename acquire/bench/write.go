@@ -181,7 +181,7 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 			continue
 		}
 		taken[role] = true
-		if hasColumns(format) {
+		if format.Lines {
 			unit := roleUnits[role]
 			qs = append(qs, Question{Key: ckey("unit"), Text: "In which unit is " + name + "?", Default: unit, check: func(s string) (string, error) {
 				if !unitOf(s, unit) {
@@ -257,7 +257,7 @@ func number(unit string, above bool) func(string) (string, error) {
 }
 
 // hasColumns tells whether what a format says at once can be several values.
-func hasColumns(f meter.Format) bool { return f.Lines }
+func hasColumns(f meter.Format) bool { return f.Lines || f.Name == "stx" }
 
 // serial tells whether a line has settings.
 func serial(path string) bool {

@@ -15,9 +15,6 @@ const (
 	proofTime   = 6 * time.Second        // of reading back
 )
 
-// pauses are the times before another try, over a new connection if need be.
-var pauses = []time.Duration{0, 100 * time.Millisecond, 500 * time.Millisecond, 2 * time.Second}
-
 // goal is one outlet on its way off.
 type goal struct {
 	o       *outlet
@@ -46,7 +43,8 @@ func (k *keeper) goOff(c cause) OffReport {
 	if k.drain != nil {
 		t.drain = &goal{o: k.drain, v: math.NaN()}
 	}
-	for try, pause := range pauses {
+	// Each try goes over a new connection if need be.
+	for try, pause := range k.lim.pauses {
 		time.Sleep(pause)
 		t.command(try)
 		t.prove()
@@ -236,27 +234,27 @@ func (e *otherwise) Error() string { return e.text }
 // denied, whether its voltage has gone.
 func (g *goal) proveDrain(t *talk) (float64, error) {
 	o := g.o
-	if err := t.clearLeftover(o.cmd["identify"], replyLimit); err != nil {
+	if err := t.clearLeftover(o.cmd["identify"], o.lim.reply); err != nil {
 		return math.NaN(), err
 	}
-	refused := o.faults(t, replyLimit)
+	refused := o.faults(t, o.lim.reply)
 	if refused != nil && !errors.Is(refused, ErrRefused) {
 		return math.NaN(), refused
 	}
-	off, can, err := o.isOff(t, replyLimit)
+	off, can, err := o.isOff(t, o.lim.reply)
 	if err != nil {
 		return math.NaN(), err
 	}
 	if can && off {
-		v, err := o.read(t, replyLimit) // its capacitors may still hold some
+		v, err := o.read(t, o.lim.reply) // its capacitors may still hold some
 		if err != nil {
 			v = math.NaN()
 		}
 		return v, nil
 	}
 	var v float64
-	for end := time.Now().Add(settleLimit / 2); ; time.Sleep(20 * time.Millisecond) {
-		v, err = o.read(t, replyLimit)
+	for end := time.Now().Add(o.lim.settle / 2); ; time.Sleep(20 * time.Millisecond) {
+		v, err = o.read(t, o.lim.reply)
 		if err != nil && !errors.Is(err, ErrReadBack) {
 			return v, err
 		}
@@ -278,14 +276,14 @@ func (g *goal) proveDrain(t *talk) (float64, error) {
 
 // proveGate reads until the gate is at its off voltage.
 func (o *outlet) proveGate(t *talk, v float64) (float64, error) {
-	if err := t.clearLeftover(o.cmd["identify"], replyLimit); err != nil {
+	if err := t.clearLeftover(o.cmd["identify"], o.lim.reply); err != nil {
 		return math.NaN(), err
 	}
-	refused := o.faults(t, replyLimit)
+	refused := o.faults(t, o.lim.reply)
 	if refused != nil && !errors.Is(refused, ErrRefused) {
 		return math.NaN(), refused
 	}
-	got, err := o.settle(t, v, settleLimit/2)
+	got, err := o.settle(t, v, o.lim.settle/2)
 	if err == nil {
 		return got, nil
 	}
@@ -304,13 +302,13 @@ func (t *trip) mayOpen() bool {
 func (t *trip) open() {
 	o := t.gate.o
 	_, err := o.line.do(proofTime, nil, func(k *talk) (float64, error) {
-		if err := o.say(k, "off", replyLimit); err != nil {
+		if err := o.say(k, "off", o.lim.reply); err != nil {
 			return 0, err
 		}
-		if err := o.faults(k, replyLimit); err != nil {
+		if err := o.faults(k, o.lim.reply); err != nil {
 			return 0, err
 		}
-		off, can, err := o.isOff(k, replyLimit)
+		off, can, err := o.isOff(k, o.lim.reply)
 		if err == nil && can && !off {
 			err = fmt.Errorf("%w: %s: its output is still on after %q", ErrReadBack, o, o.cmd["off"])
 		}

@@ -11,13 +11,24 @@ import (
 
 // How long an instrument may take, and how far what it reads back may be off.
 const (
-	replyLimit  = 1500 * time.Millisecond // a measuring supply needs some tenths of a second
-	settleLimit = 1 * time.Second         // an output capacitor has to charge or to be drained
-	errorReads  = 20                      // some instruments report a fault again and again
-	readFloor   = 0.05                    // V: resolution and offset of a supply's own voltmeter
-	readShare   = 0.02                    // of the voltage
-	goneVolts   = 0.5                     // V: a drain supply below this is taken for off
+	errorReads = 20   // some instruments report a fault again and again
+	readFloor  = 0.05 // V: resolution and offset of a supply's own voltmeter
+	readShare  = 0.02 // of the voltage
+	goneVolts  = 0.5  // V: a drain supply below this is taken for off
 )
+
+// limits are the times that an instrument is given.
+type limits struct {
+	reply  time.Duration   // a measuring supply needs some tenths of a second
+	settle time.Duration   // an output capacitor has to charge or to be drained
+	poll   time.Duration   // an idle supply is asked so often: it may have gone
+	pauses []time.Duration // before each try to reach the off state
+}
+
+var usual = limits{
+	reply: 1500 * time.Millisecond, settle: time.Second, poll: 500 * time.Millisecond,
+	pauses: []time.Duration{0, 100 * time.Millisecond, 500 * time.Millisecond, 2 * time.Second},
+}
 
 func near(got, want float64) bool {
 	return math.Abs(got-want) <= readFloor+readShare*math.Abs(want)
@@ -28,6 +39,7 @@ type outlet struct {
 	Supply
 	cmd   commands
 	line  *line
+	lim   limits
 	known bool // it is what it should be; nothing else is ever sent anything but the question who it is
 }
 
@@ -138,10 +150,10 @@ func (o *outlet) faults(t *talk, limit time.Duration) error {
 
 // order says a command and proves that it was taken.
 func (o *outlet) order(t *talk, name string, v ...float64) error {
-	if err := o.say(t, name, replyLimit, v...); err != nil {
+	if err := o.say(t, name, o.lim.reply, v...); err != nil {
 		return err
 	}
-	return o.faults(t, replyLimit)
+	return o.faults(t, o.lim.reply)
 }
 
 // read is the voltage at the output, with the device's sign.
@@ -154,7 +166,7 @@ func (o *outlet) read(t *talk, limit time.Duration) (float64, error) {
 // gives what it read last.
 func (o *outlet) settle(t *talk, want float64, patience time.Duration) (float64, error) {
 	for end := time.Now().Add(patience); ; time.Sleep(10 * time.Millisecond) {
-		v, err := o.read(t, replyLimit)
+		v, err := o.read(t, o.lim.reply)
 		if err != nil && !errors.Is(err, ErrReadBack) {
 			return v, err
 		}
@@ -187,9 +199,9 @@ func (o *outlet) identify(t *talk) (float64, error) {
 	if o.cmd["identify"] != "" {
 		// What a user before us left in the line's buffers ends here.
 		o.line.setLeftover(true)
-		reply, err := o.query(t, "identify", replyLimit)
+		reply, err := o.query(t, "identify", o.lim.reply)
 		if err != nil {
-			reply, err = o.query(t, "identify", replyLimit)
+			reply, err = o.query(t, "identify", o.lim.reply)
 		}
 		if err != nil {
 			return 0, err
@@ -206,13 +218,13 @@ func (o *outlet) identify(t *talk) (float64, error) {
 // shut clears old faults and switches the output off, whatever state the last user
 // left it in.
 func (o *outlet) shut(t *talk) (float64, error) {
-	if err := o.say(t, "clear", replyLimit); err != nil {
+	if err := o.say(t, "clear", o.lim.reply); err != nil {
 		return 0, err
 	}
 	if err := o.order(t, "off"); err != nil {
 		return 0, err
 	}
-	off, can, err := o.isOff(t, replyLimit)
+	off, can, err := o.isOff(t, o.lim.reply)
 	if err != nil {
 		return 0, err
 	}
@@ -252,7 +264,7 @@ func (o *outlet) compare(t *talk, query, unit string, want, floor, share float64
 	if o.cmd[query] == "" {
 		return nil
 	}
-	got, err := o.number(t, query, replyLimit)
+	got, err := o.number(t, query, o.lim.reply)
 	if err != nil {
 		return err
 	}
@@ -267,14 +279,14 @@ func (o *outlet) raise(t *talk, v float64) (float64, error) {
 	if err := o.order(t, "on"); err != nil {
 		return math.NaN(), err
 	}
-	off, can, err := o.isOff(t, replyLimit)
+	off, can, err := o.isOff(t, o.lim.reply)
 	if err != nil {
 		return math.NaN(), err
 	}
 	if can && off {
 		return math.NaN(), fmt.Errorf("%w: %s: its output is still off after %q", ErrReadBack, o, o.cmd["on"])
 	}
-	return o.settle(t, v, settleLimit)
+	return o.settle(t, v, o.lim.settle)
 }
 
 // move sets an output that is on.
@@ -286,5 +298,5 @@ func (o *outlet) move(t *talk, v float64) (float64, error) {
 	if err := o.order(t, "set", setting); err != nil {
 		return math.NaN(), err
 	}
-	return o.settle(t, v, settleLimit)
+	return o.settle(t, v, o.lim.settle)
 }

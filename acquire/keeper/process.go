@@ -18,7 +18,7 @@ import (
 // state was reached and confirmed, 1 when it was not, 2 when nothing was driven.
 func Main(stdin io.Reader, stdout io.Writer) int {
 	ignoreSignals()
-	return serve(stdin, stdout, openPort)
+	return serve(stdin, stdout, openPort, usual)
 }
 
 func openPort(address, settings string) (port.Conn, error) {
@@ -31,12 +31,12 @@ func openPort(address, settings string) (port.Conn, error) {
 
 const (
 	orderLimit = 8 * time.Second        // of one order; each of its queries has its own, shorter one
-	pollEvery  = 500 * time.Millisecond // an idle supply is asked so often: it may have gone
 	flushLimit = 300 * time.Millisecond // the last answers go out, if anyone listens
 )
 
 type keeper struct {
 	cfg   Config
+	lim   limits
 	log   *journal
 	gate  *outlet
 	drain *outlet // nil: cannot be switched
@@ -51,7 +51,7 @@ type keeper struct {
 	drainOn  bool
 }
 
-func serve(stdin io.Reader, stdout io.Writer, open opener) int {
+func serve(stdin io.Reader, stdout io.Writer, open opener, lim limits) int {
 	out := make(chan answer, 64)
 	sent := make(chan struct{})
 	go func() {
@@ -64,7 +64,7 @@ func serve(stdin io.Reader, stdout io.Writer, open opener) int {
 			}
 		}
 	}()
-	code := converse(stdin, out, open)
+	code := converse(stdin, out, open, lim)
 	close(out)
 	select {
 	case <-sent:
@@ -82,8 +82,8 @@ func (k *keeper) tell(a answer) {
 	}
 }
 
-func converse(stdin io.Reader, out chan answer, open opener) (code int) {
-	k := &keeper{out: out, set: math.NaN(), read: math.NaN()}
+func converse(stdin io.Reader, out chan answer, open opener, lim limits) (code int) {
+	k := &keeper{lim: lim, out: out, set: math.NaN(), read: math.NaN()}
 	in := bufio.NewScanner(stdin)
 	in.Buffer(make([]byte, 4096), longestLine)
 	refuse := func(err error) int {
@@ -150,7 +150,7 @@ func (k *keeper) connect(open opener) {
 		if l == nil || l.address != s.Address {
 			l = &line{address: s.Address, settings: s.Settings, open: open, log: k.log}
 		}
-		return &outlet{Supply: s, cmd: cmd, line: l}
+		return &outlet{Supply: s, cmd: cmd, line: l, lim: k.lim}
 	}
 	k.gate = outletOf(k.cfg.Gate, nil)
 	if k.cfg.Drain != nil {
@@ -201,7 +201,7 @@ func (k *keeper) start() error {
 
 // keep follows orders until bye or the end of the input. It returns in the off state.
 func (k *keeper) keep(orders <-chan order) {
-	poll := time.NewTimer(pollEvery)
+	poll := time.NewTimer(k.lim.poll)
 	defer poll.Stop()
 	for {
 		raised := k.alarm.raised
@@ -224,7 +224,7 @@ func (k *keeper) keep(orders <-chan order) {
 		case <-poll.C:
 			k.poll()
 		}
-		poll.Reset(pollEvery)
+		poll.Reset(k.lim.poll)
 	}
 }
 
@@ -333,12 +333,12 @@ func (k *keeper) poll() {
 	if k.off != nil {
 		return
 	}
-	v, err := k.run(k.gate, func(t *talk) (float64, error) { return k.gate.settle(t, k.set, settleLimit/2) })
+	v, err := k.run(k.gate, func(t *talk) (float64, error) { return k.gate.settle(t, k.set, k.lim.settle/2) })
 	if err == nil || errors.Is(err, ErrReadBack) {
 		k.read = v
 	}
 	if err == nil && k.drain != nil {
-		_, err = k.run(k.drain, func(t *talk) (float64, error) { return k.drain.read(t, replyLimit) })
+		_, err = k.run(k.drain, func(t *talk) (float64, error) { return k.drain.read(t, k.lim.reply) })
 	}
 	k.judge(err)
 }

@@ -94,7 +94,7 @@ func TestRefusedSetLeavesTheDecisionToTheProgram(t *testing.T) {
 	if a.Kind != "refused" || !strings.Contains(a.Error, "out of range") {
 		t.Fatalf("%+v", a)
 	}
-	time.Sleep(2 * pollEvery) // a poll finds it where it was
+	time.Sleep(2 * hurried.poll) // a poll finds it where it was
 	if a := r.done(order{Do: doStatus}); a.Off != nil || *a.V != 2 {
 		t.Errorf("%+v", a)
 	}
@@ -204,13 +204,16 @@ func TestEndOfOrdersWhileStarting(t *testing.T) {
 	gate.slow = 50 * time.Millisecond
 	gate.with(func(o *output) { o.volts, o.on = 5, true })
 	r := newRig(t, gateAndDrain(), gate, drain)
-	for gate.notes.first("gate", "*IDN?", 0) < 0 {
+	for gate.notes.first("gate", "CURR 0.02", 0) < 0 {
 		time.Sleep(time.Millisecond)
 	}
+	from := len(gate.notes.all())
 	r.in.Close()
-	r.ended()
-	if g := gate.state(); g.on && g.volts != 0 && gate.notes.first("gate", "*CLS", 0) >= 0 {
-		t.Errorf("gate %+v\n%s", g, gate.notes)
+	if code := r.ended(); code == 0 {
+		t.Error("exit code 0 of a start that was broken off")
+	}
+	if gate.notes.first("gate", "OUTP ON", 0) >= 0 || gate.notes.first("drain", "OUTP OFF", from) < 0 || gate.notes.first("gate", "VOLT 0", from) < 0 {
+		t.Errorf("the way off was not gone\n%s", gate.notes)
 	}
 }
 
@@ -334,7 +337,7 @@ func TestReadBackWrong(t *testing.T) {
 			n++
 		}
 	}
-	if n < 1+len(pauses) {
+	if n < 1+len(hurried.pauses) {
 		t.Errorf("the off voltage was set %d times\n%s", n, gate.notes)
 	}
 }

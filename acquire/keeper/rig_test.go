@@ -27,6 +27,12 @@ type rig struct {
 	fail  map[string]error   // opening gives it
 }
 
+// hurried is for supplies that answer at once.
+var hurried = limits{
+	reply: 800 * time.Millisecond, settle: 150 * time.Millisecond, poll: 100 * time.Millisecond,
+	pauses: []time.Duration{0, 10 * time.Millisecond, 20 * time.Millisecond, 50 * time.Millisecond},
+}
+
 // generous is longer than anything here takes on a loaded machine.
 const generous = 20 * time.Second
 
@@ -67,7 +73,7 @@ func newRig(t *testing.T, c Config, supplies ...*supply) *rig {
 	outR, outW := io.Pipe()
 	r.in = inW
 	go func() {
-		code := serve(inR, outW, open)
+		code := serve(inR, outW, open, hurried)
 		outW.Close()
 		inR.Close()
 		r.code <- code

@@ -94,6 +94,9 @@ func (t *tmc) Read(p []byte) (int, error) {
 			return 0, t.failed(err)
 		}
 		t.rest = reply[:n]
+		if n > 0 && n < tmcReply && reply[n-1] != '\n' {
+			t.rest = append(t.rest, '\n') // the message's end was told beside its bytes
+		}
 	}
 	n := copy(p, t.rest)
 	t.rest = t.rest[n:]

@@ -73,7 +73,7 @@ func newFakeTMC(t *testing.T, f *fakeTMC) *tmc {
 }
 
 func TestTMCReadsOnlyWhatIsOwed(t *testing.T) {
-	f := &fakeTMC{replies: []string{"+1.5\n", "+2.5\n"}}
+	f := &fakeTMC{replies: []string{"+1.5", "+2.5\n"}} // the first without an LF
 	c := newFakeTMC(t, f)
 	buf := make([]byte, 3)
 	read := func() string {
