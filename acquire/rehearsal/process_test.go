@@ -15,6 +15,7 @@ import (
 	"time"
 
 	"gatesill/acquire/meter"
+	"gatesill/acquire/port"
 )
 
 const asProcess = "GATESILL_TEST_REHEARSAL"
@@ -218,6 +219,41 @@ func TestProcess(t *testing.T) {
 	}
 	if err := r.Remove(); err == nil {
 		t.Error("an order to a process that has ended")
+	}
+}
+
+// What opens real lines opens these.
+func TestOpenedAsSerialLine(t *testing.T) {
+	t.Parallel()
+	r := start(t, quick(t))
+	for _, path := range []string{r.Lines()["current"], r.Supplies()["gate"]} {
+		settings, err := port.ParseSettings("115200 8N1")
+		if err != nil {
+			t.Fatal(err)
+		}
+		c, err := port.Open(path, settings)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := c.Write([]byte("*IDN?\n")); err != nil {
+			t.Fatal(err)
+		}
+		var got []byte
+		eventually(t, "answer", func() bool {
+			b := make([]byte, 100)
+			n, err := c.Read(b)
+			if err != nil {
+				t.Fatal(err)
+			}
+			got = append(got, b[:n]...)
+			return bytes.HasSuffix(got, []byte(",0,1\n")) || bytes.HasSuffix(got, []byte(",0,1\r\n"))
+		})
+		if !bytes.HasPrefix(got, []byte("REHEARSAL,simulated ")) {
+			t.Errorf("%q", got)
+		}
+		if err := c.Close(); err != nil {
+			t.Error(err)
+		}
 	}
 }
 
