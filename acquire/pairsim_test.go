@@ -136,21 +136,29 @@ func (m simMeter) quantity(vg float64) float64 {
 }
 
 // handhelds are three handhelds: cycles 300, 400 and 250 ms, 100 ms integration, 50 ms
-// processing, unknown lag ±30 ms each, up to 16 ms of batching, current and load
+// processing, unknown lag within ±30 ms each, up to 16 ms of batching, current and load
 // voltage in automatic ranges.
 func handhelds(g *rand.Rand) []simMeter {
 	make := func(role string, cycle float64, counts float64, digits ...float64) simMeter {
 		return simMeter{role: role, meter: role + " handheld", timing: Timing{Integration: 0.1, Processing: 0.05, LagU: 0.03, Jitter: 0.016},
-			cycle: cycle, lag: 0.03 * (2*g.Float64() - 1), digits: digits, counts: counts, noise: 0.2}
+			cycle: cycle, lag: within(g, 0.03), digits: digits, counts: counts, noise: 0.2}
 	}
 	return []simMeter{make(Gate, 0.3, 4000, 1e-3), make(Current, 0.4, 4000, 1e-6, 1e-5, 1e-4), make(Load, 0.25, 4000, 1e-4, 1e-3)}
+}
+
+// within draws from ±x, every other time one of the ends.
+func within(g *rand.Rand, x float64) float64 {
+	if g.IntN(2) == 0 {
+		return math.Copysign(x, g.Float64()-0.5)
+	}
+	return x * (2*g.Float64() - 1)
 }
 
 // fast makes a meter one of 20 ms integration and 22 ms cycle, unknown lag ±2 ms.
 func fast(g *rand.Rand, m simMeter) simMeter {
 	m.meter = m.role + " fast"
 	m.timing = Timing{Integration: 0.02, Processing: 0.002, LagU: 0.002}
-	m.cycle, m.lag, m.noise = 0.022, 0.002*(2*g.Float64()-1), 0.3
+	m.cycle, m.lag, m.noise = 0.022, within(g, 0.002), 0.3
 	return m
 }
 
