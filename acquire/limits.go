@@ -240,18 +240,28 @@ func (g *Guard) Look() Watch {
 }
 
 // expected gives the shares that a drain current id (A, magnitude) at a gate
-// voltage vg (V, magnitude) would take, on the way there from now: with V_DS as
-// it is now, for it only falls on a load line while the current rises.
+// voltage vg (V, magnitude) would take, on the way there and on the way back: with
+// the whole of V_DD across the device, as the last two values of each meter will
+// have it when the gate is turned back.
 func (g *Guard) expected(vg, id float64) []Share {
-	vds := g.drain()
+	vds := g.open()
 	if g.circuit.Circuit == record.Diode {
-		vds = greater(vds, vg)
+		vds = greater(g.last[Gate].max(), vg)
 	}
 	shares := []Share{{"V_GS", "V", vg, g.limits.Vgs}, {"I_D", "A", id, g.limits.ID}, {"P_D", "W", product(vds, id), g.limits.PD}}
 	if rl := g.circuit.RL.Float(); rl > 0 && g.circuit.Circuit != record.Fixed {
 		shares = append(shares, Share{"load resistor", "W", id * id * rl, g.circuit.RLRating.Or(0)})
 	}
 	return slices.DeleteFunc(shares, func(s Share) bool { return s.Limit <= 0 })
+}
+
+// open gives the greatest V_DS that the circuit can put across the device, V.
+func (g *Guard) open() float64 {
+	vds := g.drain()
+	if g.circuit.Circuit == record.Load {
+		vds = greater(vds, g.supply())
+	}
+	return vds
 }
 
 // most gives the greatest drain current the circuit lets through (A), +Inf when

@@ -181,10 +181,11 @@ func (r *Runner) latest() Point {
 // idNow is the drain current now (A, magnitude), NaN when not fresh.
 func (r *Runner) idNow() float64 { return r.idOf(r.latest()) }
 
-// floor is the smallest drain current (A) that counts as one: well above the last
-// digit, and above what a supply voltage that was not read can feign.
+// floor is the smallest drain current (A) that counts as one: of interest, well
+// above the last digit, and above what a supply voltage that was not read can
+// feign.
 func (r *Runner) floor() float64 {
-	const least = 20e-6
+	least := math.Max(20e-6, r.plan.Least.Else(record.Known(math.Abs(r.plan.Idle.Float())/1000)).Or(0))
 	digits := func(role string, by float64) float64 {
 		if d := r.ears.of(role).digit; d > 0 && by > 0 {
 			return math.Max(least, 5*d/by)
