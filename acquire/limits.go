@@ -10,10 +10,10 @@ import (
 
 // The shares of a limit at which something happens.
 const (
-	warnShare = 0.8  // said
-	stopShare = 1.0  // stopped, or called by hand
-	gateShare = 0.98 // of V_GS no step goes further; a voltage that is set does not run away as a current does
-	stepShare = 0.9  // no step is made whose predicted end lies above: a sound step must not set off the stop by itself
+	warnShare = 0.795 // said: what reads as 80 %
+	stopShare = 1.0   // stopped, or called by hand
+	gateShare = 0.98  // of V_GS no step goes further; a voltage that is set does not run away as a current does
+	stepShare = 0.9   // no step is made whose predicted end lies above: a sound step must not set off the stop by itself
 )
 
 // Level says how near a device is to its limits.
@@ -40,7 +40,7 @@ func (s Share) Of() float64 { return s.Value / s.Limit }
 // Level says what the share asks for.
 func (s Share) Level() Level {
 	switch f := s.Of(); {
-	case f >= stopShare:
+	case f >= stopShare*(1-1e-12): // a sum of decimals may be a hair below
 		return Over
 	case f >= warnShare:
 		return Warn

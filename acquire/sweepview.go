@@ -194,7 +194,7 @@ func (r *Runner) climbing() string {
 		return "stand still until the point is taken"
 	case math.IsNaN(r.goal):
 		return fmt.Sprintf("turn the gate slowly %s until current shows (%s), then stand still", more, show(r.floor(), "A"))
-	case r.sign*r.ears.number(Gate, r.now) >= r.goal-math.Min(r.window, 0.004):
+	case math.Abs(r.sign*r.ears.number(Gate, r.now)-r.goal) <= math.Min(r.window, 0.004):
 		return "stand still at " + show(r.sign*r.goal, "V")
 	}
 	return "turn to " + show(r.sign*r.goal, "V")
