@@ -47,7 +47,7 @@ type Plan struct {
 	Least record.Num // A, smallest current of interest [a thousandth of the idle current]
 
 	At       record.Num // A, of a spot; [where the circuit sets it]
-	AtWithin float64    // fraction of At that is near enough [0.02]
+	AtWithin float64    // fraction of At that is near enough [0.02, driven 0.005]
 	Settle   record.Num // s, the same wait for every part before a point [until it has settled]
 	Patience float64    // s, of a driven sweep with a point that does not settle [60; spot 900]
 	MinStep  float64    // V, smallest step [2 mV, by hand 5 mV]
@@ -213,6 +213,9 @@ func (p *Plan) fill() {
 	}
 	if p.AtWithin <= 0 {
 		p.AtWithin = 0.02
+		if p.driven() {
+			p.AtWithin = 0.005
+		}
 	}
 	if p.Patience <= 0 {
 		p.Patience = 60

@@ -170,7 +170,7 @@ func TestLimitByHand(t *testing.T) {
 			}
 			if heedless && s.done == nil { // the hand goes on whatever is said
 				s.u += 0.0005
-				s.set = s.u
+				s.stopTurn = math.Inf(1)
 			}
 		}
 		s.run(400)

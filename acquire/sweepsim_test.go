@@ -272,6 +272,13 @@ func (s *sim) turn() {
 	switch {
 	case strings.HasPrefix(v.Instruction, "stand still"), strings.HasPrefix(v.Instruction, "wait"):
 		s.set = s.u
+	case strings.HasPrefix(v.Instruction, "bring the current back"):
+		d := 0.003
+		if v.ID > s.plan.At.Float() {
+			d = -d
+		}
+		s.set = s.u + d
+		s.seen.Instruction = "" // one move a look
 	case strings.Contains(v.Instruction, "off voltage"), strings.HasPrefix(v.Instruction, "stop"), strings.HasPrefix(v.Instruction, "turn the gate back"):
 		s.set = s.sign * s.plan.Off()
 	case !math.IsNaN(v.Target):

@@ -202,7 +202,7 @@ func (r *Runner) climbing() string {
 
 func (r *Runner) settling() string {
 	at, has := r.plan.At.Get()
-	if id := r.idNow(); has && !r.plan.driven() && math.Abs(id-at) > 1.5*r.plan.AtWithin*at {
+	if id := r.idNow(); has && !r.plan.driven() && math.Abs(id-at) > 1.5*r.within(at) {
 		return fmt.Sprintf("bring the current back to %s; it is %s", show(at, "A"), show(id, "A"))
 	}
 	if s, ok := r.plan.Settle.Get(); ok && !r.ripe {
