@@ -108,7 +108,7 @@ func safePrediction(ns []node, now node, floor float64) func(u float64) float64 
 // caller's predictor says, never below what is read now, else the safe prediction;
 // never more than the circuit lets through.
 func (r *Runner) predict() func(u float64) float64 {
-	now := node{r.sign * r.ears.of(Gate).value, math.Abs(r.idNow())}
+	now := r.here()
 	ns := nodes(r.curve, r.sign, r.idOf)
 	safe := safePrediction(ns, now, r.floor())
 	var given func(float64) (float64, bool)
@@ -126,13 +126,23 @@ func (r *Runner) predict() func(u float64) float64 {
 	}
 }
 
+// here is where a step begins: what is read now, or by hand the last point, while
+// the gate is elsewhere because the sweep is taken up again.
+func (r *Runner) here() node {
+	now := node{r.sign * r.ears.of(Gate).value, math.Abs(r.idNow())}
+	if n := len(r.points); n > 0 && !r.plan.driven() && r.phase == phClimb && math.Abs(now.u-r.target) > nearOff {
+		return node{r.target, r.idOf(r.points[n-1])}
+	}
+	return now
+}
+
 // reach gives how far the gate may go from here, at most by far (V, in the
 // direction that turns on), such that on the whole way no current predicted is above
 // soft and no share of a limit above [stepShare]. It is 0 when the smallest way
 // is too much already. why names the limit that ended it, "" for soft and for far.
 func (r *Runner) reach(far, soft float64) (step float64, why string) {
 	const part = 0.0005
-	here := r.sign * r.ears.of(Gate).value
+	here := r.here().u
 	predict := r.predict()
 	for step < far {
 		next := math.Min(step+part, far)

@@ -533,9 +533,18 @@ func (r *Runner) begin() {
 		r.bring()
 		return
 	}
-	if n := len(r.points); n > 0 && r.plan.driven() { // taken up again: up to where it was
-		r.regain = true
-		r.head(r.targets[n-1])
+	if n := len(r.points); n > 0 { // taken up again: up to where it was
+		r.target, r.goal = r.targets[n-1], math.NaN()
+		switch {
+		case r.plan.driven():
+			r.target = r.sign * r.plan.Off()
+			r.regain = true
+			r.head(r.targets[n-1])
+		case r.plan.Mode == ByHand:
+			r.next()
+		default:
+			r.say("%s", r.instruction())
+		}
 		return
 	}
 	from := r.sign * r.plan.From.Or(r.plan.Off())

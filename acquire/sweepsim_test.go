@@ -59,6 +59,7 @@ type simMeter struct {
 // sim is a bench in simulated time.
 type sim struct {
 	t        *testing.T
+	fail     func(format string, a ...any)
 	r        *Runner
 	plan     Plan
 	dev      *simDevice
@@ -100,7 +101,7 @@ type sim struct {
 
 func newSim(t *testing.T, p Plan, d *simDevice) *sim {
 	t.Helper()
-	s := &sim{t: t, plan: p, dev: d, vdd: math.Abs(p.Circuit.VDD.Or(12)), rl: p.Circuit.RL.Or(5), circuit: p.Circuit.Circuit, sign: p.Sign(),
+	s := &sim{t: t, fail: t.Fatalf, plan: p, dev: d, vdd: math.Abs(p.Circuit.VDD.Or(12)), rl: p.Circuit.RL.Or(5), circuit: p.Circuit.Circuit, sign: p.Sign(),
 		rng: rand.New(rand.NewPCG(7, 11)), rate: 0.15, hand: p.Mode == ByHand || p.Mode == Free || p.Mode == AtSpot && !p.DrivesGate}
 	cycles := map[string]float64{Gate: 0.30, Current: 0.25, Load: 0.35, Drain: 0.40, Supply: 0.5, Temperature: 1}
 	digits := map[string]float64{Gate: 1e-3, Current: 1e-5, Load: 1e-3, Drain: 1e-2, Supply: 1e-2, Temperature: 0.1}
@@ -117,7 +118,7 @@ func (s *sim) start() *sim {
 	s.t.Helper()
 	r, err := NewRunner(s.plan)
 	if err != nil {
-		s.t.Fatalf("runner: %v", err)
+		s.fail("runner: %v", err)
 	}
 	s.r = r
 	return s
@@ -129,7 +130,7 @@ func (s *sim) meter(role string) *simMeter {
 			return m
 		}
 	}
-	s.t.Fatalf("no %s meter", role)
+	s.fail("no %s meter", role)
 	return nil
 }
 
@@ -156,7 +157,7 @@ func (s *sim) solveNow() (id, vds float64) {
 	if s.circuit == record.Diode {
 		// gate and drain tied: u follows
 		lo, hi := 0.0, s.supply
-		for range 36 {
+		for range 26 {
 			m := (lo + hi) / 2
 			if s.dev.at(m, m) < (s.supply-m)/s.rl {
 				lo = m
@@ -171,7 +172,7 @@ func (s *sim) solveNow() (id, vds float64) {
 		return s.dev.at(s.u, s.supply), s.supply
 	}
 	lo, hi := 0.0, s.supply
-	for range 36 {
+	for range 26 {
 		m := (lo + hi) / 2
 		if s.dev.at(s.u, m) < (s.supply-m)/s.rl {
 			lo = m
@@ -182,7 +183,7 @@ func (s *sim) solveNow() (id, vds float64) {
 	return s.dev.at(s.u, lo), lo
 }
 
-const simStep = 0.01
+const simStep = 0.02
 
 // run lets the bench run until the sweep is over and its orders are carried out, at
 // most for so many simulated seconds.
@@ -306,22 +307,22 @@ func (s *sim) do(orders []Order) {
 		switch o := o.(type) {
 		case SetGate:
 			if s.done != nil || len(s.off) > 0 {
-				s.t.Fatalf("%.2f s: gate set to %g V after the end", s.now, o.V)
+				s.fail("%.2f s: gate set to %g V after the end", s.now, o.V)
 			}
 			if m := s.plan.Limits.Vgs; m > 0 && math.Abs(o.V) > m {
-				s.t.Fatalf("%.2f s: gate set to %g V, limit %g V", s.now, o.V, m)
+				s.fail("%.2f s: gate set to %g V, limit %g V", s.now, o.V, m)
 			}
 			if !s.plan.DrivesGate {
-				s.t.Fatalf("gate set by hand")
+				s.fail("gate set by hand")
 			}
 			s.checkStep(s.sign * o.V)
 			s.set = s.sign * o.V
 		case SwitchDrain:
 			if s.done != nil {
-				s.t.Fatalf("drain switched after the end")
+				s.fail("drain switched after the end")
 			}
 			if !s.plan.DrivesDrain {
-				s.t.Fatalf("drain switched without a supply")
+				s.fail("drain switched without a supply")
 			}
 			s.drainOn = o.On
 		case Say:
@@ -332,26 +333,34 @@ func (s *sim) do(orders []Order) {
 			s.taken = s.taken[:len(s.taken)-o.N]
 		case Done:
 			if s.done != nil {
-				s.t.Fatalf("done twice: %+v, %+v", *s.done, o)
+				s.fail("done twice: %+v, %+v", *s.done, o)
 			}
 			s.done = &o
 			s.offAt = s.now
 		case Off:
 			if !s.plan.drives() {
-				s.t.Fatalf("off without supplies")
+				s.fail("off without supplies")
 			}
 			if s.done == nil {
-				s.t.Fatalf("off before done")
+				s.fail("off before done")
 			}
 			s.off = append(s.off, o)
 			s.drainOn = s.drainOn && !s.plan.DrivesDrain
 			s.set = s.sign * s.plan.Off()
 		}
 	}
-	if s.done != nil && s.plan.drives() && len(orders) > 0 {
-		if _, ok := s.orders[len(s.orders)-1].(Off); !ok {
-			s.t.Fatalf("%.2f s: after the end the last order is %T", s.now, s.orders[len(s.orders)-1])
+	if s.done == nil || !s.plan.drives() {
+		return
+	}
+	for i := len(s.orders) - 1; i >= 0; i-- { // what is said to keys afterwards is no order to a supply
+		switch o := s.orders[i].(type) {
+		case Say:
+			continue
+		case Off:
+		default:
+			s.fail("%.2f s: after the end the last order is %T", s.now, o)
 		}
+		return
 	}
 }
 
@@ -373,7 +382,7 @@ func (s *sim) checkStep(u float64) {
 				most = gateShare
 			}
 			if !(share.Of() <= most+1e-9) {
-				s.t.Fatalf("%.2f s: step from %.3f to %.3f V is predicted to reach %v", s.now, s.set, u, share)
+				s.fail("%.2f s: step from %.3f to %.3f V is predicted to reach %v", s.now, s.set, u, share)
 			}
 		}
 	}
