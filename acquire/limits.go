@@ -10,10 +10,10 @@ import (
 
 // The shares of a limit at which something happens.
 const (
-	warnShare = 0.8  // said
-	stopShare = 1.0  // stopped, or called by hand
-	gateShare = 0.98 // of V_GS no step goes further; a voltage that is set does not run away as a current does
-	stepShare = 0.9  // no step is made whose predicted end lies above: a sound step must not set off the stop by itself
+	warnShare = 0.795 // said: what reads as 80 %
+	stopShare = 1.0   // stopped, or called by hand
+	gateShare = 0.98  // of V_GS no step goes further; a voltage that is set does not run away as a current does
+	stepShare = 0.9   // no step is made whose predicted end lies above: a sound step must not set off the stop by itself
 )
 
 // Level says how near a device is to its limits.
@@ -40,7 +40,7 @@ func (s Share) Of() float64 { return s.Value / s.Limit }
 // Level says what the share asks for.
 func (s Share) Level() Level {
 	switch f := s.Of(); {
-	case f >= stopShare:
+	case f >= stopShare*(1-1e-12): // a sum of decimals may be a hair below
 		return Over
 	case f >= warnShare:
 		return Warn
@@ -263,18 +263,28 @@ func (g *Guard) power(vds, id float64) float64 {
 }
 
 // expected gives the shares that a drain current id (A, magnitude) at a gate
-// voltage vg (V, magnitude) would take, on the way there from now: with V_DS as
-// it is now, for it only falls on a load line while the current rises.
+// voltage vg (V, magnitude) would take, on the way there and on the way back: with
+// the whole of V_DD across the device, as the last two values of each meter will
+// have it when the gate is turned back.
 func (g *Guard) expected(vg, id float64) []Share {
-	vds := g.drain()
+	vds := g.open()
 	if g.circuit.Circuit == record.Diode {
-		vds = greater(vds, vg)
+		vds = greater(g.last[Gate].max(), vg)
 	}
-	shares := []Share{{"V_GS", "V", vg, g.limits.Vgs}, {"I_D", "A", id, g.limits.ID}, {"P_D", "W", product(vds, id), g.limits.PD}}
+	shares := []Share{{"V_GS", "V", vg, g.limits.Vgs}, {"I_D", "A", id, g.limits.ID}, {"P_D", "W", math.Min(product(vds, id), g.mostPower()), g.limits.PD}}
 	if rl := g.circuit.RL.Float(); rl > 0 && g.circuit.Circuit != record.Fixed {
 		shares = append(shares, Share{"load resistor", "W", id * id * rl, g.circuit.RLRating.Or(0)})
 	}
 	return slices.DeleteFunc(shares, func(s Share) bool { return s.Limit <= 0 })
+}
+
+// open gives the greatest V_DS that the circuit can put across the device, V.
+func (g *Guard) open() float64 {
+	vds := g.drain()
+	if g.circuit.Circuit == record.Load {
+		vds = greater(vds, g.supply())
+	}
+	return vds
 }
 
 // most gives the greatest drain current the circuit lets through (A), +Inf when
@@ -285,6 +295,16 @@ func (g *Guard) most() float64 {
 		return math.Inf(1)
 	}
 	return 1.05 * vdd / rl // R_L may be low by its tolerance
+}
+
+// mostPower gives the greatest power that the circuit can put into the device, W;
+// +Inf when nothing bounds it.
+func (g *Guard) mostPower() float64 {
+	vdd, rl := g.supply(), g.circuit.RL.Float()
+	if g.circuit.Circuit != record.Load || !(rl > 0) || math.IsNaN(vdd) {
+		return math.Inf(1)
+	}
+	return 1.05 * vdd * vdd / (4 * rl) // R_L may be low by its tolerance
 }
 
 // greater gives the greater of two numbers, the known one when one is NaN.
