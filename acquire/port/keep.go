@@ -21,10 +21,10 @@ const (
 // A call of h that is under way when ctx ends may finish its conversation, for two
 // seconds; then the line is closed under it.
 func Keep(ctx context.Context, address string, s Settings, h Handler, o Options) error {
-	return keep(ctx, open, address, s, h, o)
+	return keep(ctx, open, grace, address, s, h, o)
 }
 
-func keep(ctx context.Context, open opener, address string, s Settings, h Handler, o Options) error {
+func keep(ctx context.Context, open opener, grace time.Duration, address string, s Settings, h Handler, o Options) error {
 	if o.ReadTimeout <= 0 {
 		o.ReadTimeout = defaultReadTimeout
 	}
@@ -39,7 +39,7 @@ func keep(ctx context.Context, open opener, address string, s Settings, h Handle
 		c, err := open(ctx, address, s, o.ReadTimeout)
 		if err == nil {
 			var talked bool
-			talked, err = serve(ctx, c, h, o)
+			talked, err = serve(ctx, c, grace, h, o)
 			c.Close() // what it says is of no use: the line is given up anyway
 			if talked {
 				delay = o.FirstRetry
@@ -62,7 +62,7 @@ func keep(ctx context.Context, open opener, address string, s Settings, h Handle
 
 // serve runs an open line until it fails or ctx ends. It tells whether the handler
 // was content with the opening.
-func serve(ctx context.Context, c Conn, h Handler, o Options) (talked bool, err error) {
+func serve(ctx context.Context, c Conn, grace time.Duration, h Handler, o Options) (talked bool, err error) {
 	done := make(chan struct{})
 	defer close(done)
 	stop := context.AfterFunc(ctx, func() {

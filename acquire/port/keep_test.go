@@ -3,12 +3,21 @@ package port
 import (
 	"context"
 	"errors"
+	"flag"
 	"fmt"
+	"os"
 	"strings"
 	"sync"
 	"testing"
 	"time"
 )
+
+// Most of these tests wait for lines, which does not need a processor each.
+func TestMain(m *testing.M) {
+	flag.Parse()
+	flag.Set("test.parallel", "16")
+	os.Exit(m.Run())
+}
 
 // notes is a handler that writes down what it is told.
 type notes struct {
@@ -106,7 +115,7 @@ func TestKeepBacksOff(t *testing.T) {
 		return f, nil
 	}
 	h := &notes{}
-	err := keep(context.Background(), open, "x", Settings{}, h, Options{FirstRetry: 10 * time.Millisecond, LastRetry: 40 * time.Millisecond})
+	err := keep(context.Background(), open, grace, "x", Settings{}, h, Options{FirstRetry: 10 * time.Millisecond, LastRetry: 40 * time.Millisecond})
 	if !errors.Is(err, ErrEnd) {
 		t.Fatal(err)
 	}
@@ -154,7 +163,7 @@ func TestKeepTriesAgainAfterTheHandlersErrors(t *testing.T) {
 		}
 		return turn(2, fail)
 	}
-	err := keep(context.Background(), open, "x", Settings{}, h, Options{FirstRetry: time.Millisecond})
+	err := keep(context.Background(), open, grace, "x", Settings{}, h, Options{FirstRetry: time.Millisecond})
 	if !errors.Is(err, ErrEnd) {
 		t.Fatal(err)
 	}
@@ -180,7 +189,7 @@ func TestKeepEndsWithItsContext(t *testing.T) {
 				return &fake{line: line{address: address}}, nil
 			}
 			h := &notes{}
-			if err := keep(ctx, open, "x", Settings{}, h, o); !errors.Is(err, context.Canceled) {
+			if err := keep(ctx, open, grace, "x", Settings{}, h, o); !errors.Is(err, context.Canceled) {
 				t.Errorf("got %v", err)
 			}
 			if got, want := h.said(), map[string]string{"reading": "opened", "waiting": "lost", "settling": ""}[x]; got != want {
@@ -209,7 +218,7 @@ func TestKeepLetsAConversationFinish(t *testing.T) {
 		}
 		return hung
 	}}
-	if err := keep(ctx, open, "x", Settings{}, h, Options{}); !errors.Is(err, context.Canceled) {
+	if err := keep(ctx, open, 500*time.Millisecond, "x", Settings{}, h, Options{}); !errors.Is(err, context.Canceled) {
 		t.Errorf("got %v", err)
 	}
 	if finished != nil || !errors.Is(hung, ErrClosed) {

@@ -152,7 +152,7 @@ func TestCloseWhileReading(t *testing.T) {
 			t.Parallel()
 			rounds, readTimeout := 1000, 10*time.Second
 			if w.name == "library" { // whose Close waits for the time-out
-				rounds, readTimeout = 300, 4*time.Millisecond
+				rounds, readTimeout = 150, 4*time.Millisecond
 			}
 			far, device := pty(t)
 			_ = far
