@@ -3,6 +3,7 @@ package port
 import (
 	"errors"
 	"sync/atomic"
+	"syscall"
 	"testing"
 	"time"
 
@@ -19,6 +20,9 @@ type touchy struct {
 	reading, closed     atomic.Bool
 	dtr, rts            atomic.Int32 // -1 low, 1 high
 	readTakes, timedOut time.Duration
+	takes               int // bytes of a Write; 0: all
+	cuts                int
+	got                 []byte
 }
 
 func (p *touchy) SetReadTimeout(d time.Duration) error {
@@ -45,6 +49,13 @@ func (p *touchy) Write(b []byte) (int, error) {
 	if p.closed.Load() {
 		p.t.Error("Write after Close")
 	}
+	if p.takes > 0 && len(b) > p.takes {
+		b = b[:p.takes]
+		if p.cuts++; p.cuts%2 == 1 {
+			return 0, syscall.EINTR
+		}
+	}
+	p.got = append(p.got, b...)
 	return len(b), nil
 }
 
@@ -102,6 +113,24 @@ func TestLibraryIsSparedWhatItDoesNotBear(t *testing.T) {
 		if p.timeouts.Load() != 1 || p.timedOut != 3*time.Millisecond || !p.closed.Load() {
 			t.Errorf("time-out set %d times, to %v", p.timeouts.Load(), p.timedOut)
 		}
+	}
+}
+
+// A signal cuts a blocking write short.
+func TestLibraryWritesAll(t *testing.T) {
+	p := &touchy{t: t, takes: 2}
+	c, err := newLibraryLine("COM3", p, Settings{}, time.Millisecond)
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer c.Close()
+	for range 2 {
+		if n, err := c.Write([]byte("OUTP OFF\n")); n != 9 || err != nil {
+			t.Errorf("%d, %v", n, err)
+		}
+	}
+	if string(p.got) != "OUTP OFF\nOUTP OFF\n" {
+		t.Errorf("sent %q", p.got)
 	}
 }
 

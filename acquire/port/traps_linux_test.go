@@ -346,6 +346,28 @@ func TestSecondOpenIsBusy(t *testing.T) {
 	c.Close()
 }
 
+// A copy of the descriptor, as a process that is just being started holds it, keeps
+// the line from nobody.
+func TestCloseGivesTheLockBack(t *testing.T) {
+	t.Parallel()
+	_, device := pty(t)
+	c, err := Open(device, Settings{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var copied int
+	control(c.(*tty).f, func(fd int) { copied, err = unix.Dup(fd) })
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer unix.Close(copied)
+	c.Close()
+	if c, err = Open(device, Settings{}); err != nil {
+		t.Fatal(err)
+	}
+	c.Close()
+}
+
 // TestChild is no test of its own: it opens the line that the environment names, says
 // so, and keeps it until it is killed.
 func TestChild(t *testing.T) {

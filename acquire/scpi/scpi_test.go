@@ -282,10 +282,10 @@ func TestPlain(t *testing.T) {
 		if err := talk.Do("V1 12.00"); err != nil {
 			t.Fatal(err)
 		}
-		if got, err := talk.Query("I1?", 100*time.Millisecond); err != nil || got != "0.125A" {
+		if got, err := talk.Query("I1?", 400*time.Millisecond); err != nil || got != "0.125A" {
 			t.Errorf("got %q, %v", got, err)
 		}
-		if got, err := talk.Query("V1?", 100*time.Millisecond); err != nil || got != "12.00V" {
+		if got, err := talk.Query("V1?", 400*time.Millisecond); err != nil || got != "12.00V" {
 			t.Errorf("got %q, %v", got, err)
 		}
 		if e, err := talk.Errors(); e != nil || err != nil {
