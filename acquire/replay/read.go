@@ -1,6 +1,7 @@
 package replay
 
 import (
+	"bytes"
 	"fmt"
 	"math"
 	"strings"
@@ -41,7 +42,7 @@ func ReadLog(path, role string, opt Options) (*Log, error) {
 func readLog(t *table.Text, path, role string, opt Options) (*Log, error) {
 	l := &Log{Role: role, Path: path, Name: t.Name, Hash: t.Hash, Size: t.Size}
 	l.Found = Found{Role: role, File: t.Name, Encoding: t.Encoding, Notes: []string{}}
-	rd := &logReader{text: t, log: l, opt: opt}
+	rd := &logReader{text: t, log: l, opt: opt, digits: map[float64]bool{}}
 	for _, step := range []func() error{rd.layout, rd.settleForm, rd.settleUnit, rd.entries} {
 		if err := step(); err != nil {
 			return nil, err
@@ -70,8 +71,10 @@ type logReader struct {
 	mark      byte
 	unit      table.Unit // of the value column; zero: in the cells or their own column
 	order     dateOrder
-	timeScale table.Unit // of elapsed numbers
-	minutes   bool       // m:s, not h:m
+	timeScale table.Unit       // of elapsed numbers
+	minutes   bool             // m:s, not h:m
+	zeros     bool             // a reading ends in a zero behind the decimal mark
+	digits    map[float64]bool // last digits of the readings
 }
 
 // sampled is a row of the head of the file.
@@ -113,6 +116,7 @@ func (rd *logReader) entries() error {
 	if err := rd.checkRefused(); err != nil {
 		return err
 	}
+	rd.settleDigits()
 	times, res, lost := settleFractions(in)
 	l.Found.Resolution = res
 	if l.Found.Form == Elapsed {
@@ -130,6 +134,39 @@ func (rd *logReader) entries() error {
 	}
 	l.Found.Cycle, l.Found.Readings = usualStep(times), len(times)
 	return nil
+}
+
+// settleDigits gives all readings the finest digit of the file where the program
+// that wrote it left zeros at the end of numbers out: else every such reading would
+// look like one in another range of the meter.
+func (rd *logReader) settleDigits() {
+	if rd.zeros || len(rd.digits) < 2 {
+		return
+	}
+	least := math.Inf(1)
+	for d := range rd.digits {
+		least = min(least, d)
+	}
+	for i := range rd.log.Entries {
+		if e := &rd.log.Entries[i]; e.Digit.IsKnown() {
+			e.Digit = record.Known(least)
+		}
+	}
+	rd.log.note("no number ends in a zero behind the decimal mark: zeros at the end were left out, and all readings are taken to %.0e %s", least, roleQuantity[rd.log.Role].dim)
+}
+
+// endsInZero reports whether a number has a zero as its last digit behind the
+// decimal mark.
+func endsInZero(text []byte, mark byte) bool {
+	i := bytes.IndexByte(text, mark)
+	if i < 0 {
+		return false
+	}
+	n := i + 1
+	for n < len(text) && text[n]-'0' <= 9 {
+		n++
+	}
+	return text[n-1] == '0'
 }
 
 // numberStep is the last digit of elapsed seconds written as numbers.
@@ -272,6 +309,8 @@ func (rd *logReader) readingOf(cells [][]byte) (r record.Reading, why string) {
 	r.Unit = unitSymbol(q.dim)
 	if r.State = n.State; r.State == "" {
 		r.Value, r.Digit = record.Known(n.Value), record.Known(n.Digit)
+		rd.zeros = rd.zeros || endsInZero(bare, rd.mark)
+		rd.digits[n.Digit] = true
 	}
 	switch {
 	case ac || alternating:

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"strconv"
 	"strings"
 	"testing"
 	"time"
@@ -112,6 +113,7 @@ type simLog struct {
 	read               func(at float64) float64
 	form               func(at float64) string
 	unit               string
+	dropped            bool // zeros at the end of a number are not written
 }
 
 var simStart = time.Date(2026, 5, 20, 10, 0, 0, 0, time.UTC)
@@ -130,9 +132,14 @@ func (b *bench) text(m simLog) string {
 		for k := range 10 {
 			sum += m.read(at-0.1+0.01*float64(k)) / 10
 		}
-		v := math.Round((sum+0.3*m.digit*b.noise.NormFloat64())/m.digit) * m.digit
+		v := math.Round((sum+0.3*m.digit*b.noise.NormFloat64())/m.digit)*m.digit + 0
 		stampAt := at + 0.05
-		fmt.Fprintf(&s, "%s,%.6g,%s\n", m.form(stampAt+m.offset+m.ppm*1e-6*stampAt), v, m.unit)
+		places := int(math.Round(-math.Log10(m.digit)))
+		text := strconv.FormatFloat(v+0, 'f', places, 64)
+		if m.dropped {
+			text = strconv.FormatFloat(v+0, 'g', 6, 64)
+		}
+		fmt.Fprintf(&s, "%s,%s,%s\n", m.form(stampAt+m.offset+m.ppm*1e-6*stampAt), text, m.unit)
 	}
 	return s.String()
 }
