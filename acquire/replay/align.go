@@ -6,13 +6,15 @@ import (
 )
 
 const (
-	nearRange  = 90.0  // s, how far clocks with one origin are searched for at first
-	leastDepth = 1.6   // how much better the best offset must fit than the usual one
-	leastLead  = 1.15  // and than the best one elsewhere
-	leastSpan  = 300.0 // s, below which no drift is looked for
-	maxDrift   = 1000e-6
-	blocks     = 8 // of the jackknife
-	safety     = 3 // bound as a multiple of the standard uncertainty
+	nearRange     = 90.0  // s, how far clocks with one origin are searched for at first
+	leastReadings = 20    // in common
+	leastDepth    = 1.6   // how much better the best offset must fit than the usual one
+	leastLead     = 1.2   // than the best one elsewhere
+	leastDip      = 1.2   // and than those beside it
+	leastSpan     = 300.0 // s, below which no drift is looked for
+	maxDrift      = 1000e-6
+	blocks        = 8 // of the jackknife
+	safety        = 3 // bound as a multiple of the standard uncertainty
 )
 
 // series is the numbers of one log, by rising time.
@@ -71,10 +73,24 @@ func (s *series) without(lo, hi float64) *series {
 	return out
 }
 
-// misfit says how badly two logs fit at an offset and a drift of one of them: the
-// root mean square of what one leaves unexplained of the other, large deviations
-// cut. NaN when too little overlaps.
-type misfit func(offset, drift float64) float64
+// held is what two logs come to when they are held against each other: how much of
+// one the other leaves unexplained, large deviations cut.
+type held struct {
+	left  float64 // sum of squares left
+	whole float64 // sum of squares about the mean
+	n     float64 // readings compared
+	noise float64 // of one reading, below which a deviation says nothing
+}
+
+// share is the unexplained part as an amplitude, from near 0 to 1: 1 where nothing
+// moves either.
+func (h held) share() float64 {
+	floor := h.n * h.noise * h.noise
+	return math.Sqrt(min((h.left+floor)/(h.whole+floor), 1))
+}
+
+// misfit holds two logs against each other at an offset and a drift of one of them.
+type misfit func(offset, drift float64) held
 
 // proportional is the misfit of two logs one of which is the other times a
 // constant; signs do not count, and readings below the floors tell nothing.
@@ -83,16 +99,19 @@ func proportional(moving, fixed *series, middle, movingFloor, fixedFloor, cut fl
 	m, f := logs(moving, movingFloor), logs(fixed, fixedFloor)
 	usual := high(moving) - high(fixed)
 	r := make([]float64, 0, len(m.t))
-	return func(offset, drift float64) float64 {
+	return func(offset, drift float64) held {
 		r = r[:0]
+		var sx, sxx float64
 		read := between{s: f}
 		for i, t := range m.t {
 			if x := read.at(t + offset + drift*(t-middle)); x == x {
 				r = append(r, m.v[i]-x-usual)
+				sx, sxx = sx+m.v[i], sxx+m.v[i]*m.v[i]
 			}
 		}
-		if len(r) < 20 || len(r) < len(m.t)/4 {
-			return math.NaN()
+		n := float64(len(r))
+		if n < leastReadings {
+			return held{}
 		}
 		ratio := 0.0 // what the usual ratio is off at this offset
 		for _, within := range []float64{4 * cut, 2 * cut, cut} {
@@ -110,7 +129,7 @@ func proportional(moving, fixed *series, middle, movingFloor, fixedFloor, cut fl
 		for _, d := range r {
 			sum += min((d-ratio)*(d-ratio), cut*cut)
 		}
-		return math.Sqrt(sum / float64(len(r)))
+		return held{left: sum, whole: max(sxx-sx*sx/n, 0), n: n, noise: 3e-3}
 	}
 }
 
@@ -138,32 +157,37 @@ func high(s *series) float64 {
 // affine is the misfit of two logs one of which is a straight line of the other:
 // the drain voltage against the current.
 func affine(moving, fixed *series, middle float64) misfit {
-	return func(offset, drift float64) float64 {
+	return func(offset, drift float64) held {
 		var n, sx, sy, sxx, sxy, syy float64
 		read := between{s: fixed}
+		x0, y0 := math.NaN(), math.NaN() // the sums are taken from the first pair, for their digits
 		for i, t := range moving.t {
 			x := read.at(t + offset + drift*(t-middle))
 			if x != x {
 				continue
 			}
 			y := moving.v[i]
+			if n == 0 {
+				x0, y0 = x, y
+			}
+			x, y = x-x0, y-y0
 			n, sx, sy = n+1, sx+x, sy+y
 			sxx, sxy, syy = sxx+x*x, sxy+x*y, syy+y*y
 		}
 		cxx, cxy, cyy := sxx-sx*sx/n, sxy-sx*sy/n, syy-sy*sy/n
-		if n < 20 || n < float64(len(moving.t))/4 || !(cxx > 0) || !(cyy > 0) {
-			return math.NaN()
+		if n < leastReadings || !(cxx > 0) || !(cyy > 0) {
+			return held{}
 		}
-		return math.Sqrt(max(1-cxy*cxy/(cxx*cyy), 0))
+		return held{left: max(cyy-cxy*cxy/cxx, 0), whole: cyy, n: n, noise: 1e-3 * spanOf(moving.v)}
 	}
 }
 
 // singleValued is the misfit of gate readings against a current: within each run of
 // current, one current belongs to one gate voltage, and more current to more of it
 // (less where sign is -1). It is the deviation in volts from the nearest rising
-// curve (pool adjacent violators: Ayer et al. 1955, from memory), as a share of the
-// span of the gate; deviations count up to a share of that span.
-func singleValued(gate, current *series, middle, floor, sign, share float64) misfit {
+// curve (pool adjacent violators: Ayer et al. 1955, from memory); deviations count up
+// to a share of the span of the gate.
+func singleValued(gate, current *series, middle, floor, digit, sign, share float64) misfit {
 	type run struct {
 		t     []float64
 		order []int // by current
@@ -203,23 +227,20 @@ func singleValued(gate, current *series, middle, floor, sign, share float64) mis
 	}
 	flush()
 	span := spanOf(gate.v)
-	total := 0
-	for _, r := range runs {
-		total += len(r.t)
-	}
 	var pool isotonic
-	return func(offset, drift float64) float64 {
-		if span == 0 || total < 20 {
-			return math.NaN()
-		}
+	return func(offset, drift float64) held {
 		cut := share * span
-		var sum, n float64
+		h := held{noise: digit / 2}
 		read := between{s: gate}
 		for _, r := range runs {
 			v := make([]float64, len(r.t))
+			var n, sx, sxx float64
 			for i, t := range r.t {
 				// The offset brings gate times to current times: here the other way.
 				v[i] = sign * read.at((t-offset+drift*middle)/(1+drift))
+				if x := v[i] - v[0]; x == x {
+					n, sx, sxx = n+1, sx+x, sxx+x*x
+				}
 			}
 			pool.reset()
 			for _, i := range r.order {
@@ -227,13 +248,16 @@ func singleValued(gate, current *series, middle, floor, sign, share float64) mis
 					pool.add(v[i])
 				}
 			}
-			s, k := pool.misfit(cut)
-			sum, n = sum+s, n+k
+			left, k := pool.misfit(cut)
+			h.left, h.n = h.left+left, h.n+k
+			if n > 0 {
+				h.whole += max(sxx-sx*sx/n, 0)
+			}
 		}
-		if n < 20 || n < float64(total)/4 {
-			return math.NaN()
+		if h.n < leastReadings || span == 0 {
+			return held{}
 		}
-		return math.Sqrt(sum/n) / span
+		return h
 	}
 }
 
@@ -275,119 +299,4 @@ func (p *isotonic) misfit(cut float64) (sum, n float64) {
 		}
 	}
 	return sum, float64(len(p.values))
-}
-
-// found is where two logs fit best.
-type found struct {
-	offset, drift   float64
-	offsetU, driftU float64
-	depth, lead     float64 // how many times worse the usual offset fits, and the best one elsewhere
-	edge            bool    // the best is at the end of the range
-	ok              bool
-}
-
-// search looks for the offset within [lo, hi] by the coarse misfit, and from there
-// for offset and, when that is asked for, drift by the fine ones in turn.
-func search(fine []misfit, coarse misfit, lo, hi, step, span float64, drift bool) found {
-	type trial struct{ at, cost float64 }
-	n := int(math.Ceil((hi-lo)/step)) + 1
-	var trials []trial
-	for i := range n {
-		at := lo + float64(i)*step
-		if c := coarse(at, 0); c == c {
-			trials = append(trials, trial{at, c})
-		}
-	}
-	if len(trials) < 9 {
-		return found{}
-	}
-	costs := make([]float64, len(trials))
-	best := 0
-	for i, tr := range trials {
-		costs[i] = tr.cost
-		if tr.cost < trials[best].cost {
-			best = i
-		}
-	}
-	f := found{offset: trials[best].at, edge: best < 2 || best >= len(trials)-2}
-	for _, cost := range fine {
-		f.offset, f.drift = refine(cost, f.offset, f.drift, step, span, drift)
-	}
-	least := coarse(f.offset, f.drift)
-	elsewhere := math.Inf(1)
-	for i, tr := range trials {
-		if math.Abs(tr.at-f.offset) > max(2, 6*step) {
-			elsewhere = min(elsewhere, costs[i])
-		}
-	}
-	f.depth, f.lead = median(costs)/least, elsewhere/least
-	f.ok = f.depth >= leastDepth && f.lead >= leastLead
-	return f
-}
-
-// refine goes downhill in ever smaller steps.
-func refine(cost misfit, offset, drift, step, span float64, withDrift bool) (float64, float64) {
-	best := cost(offset, drift)
-	if best != best {
-		best = math.Inf(1)
-	}
-	dStep := 0.0
-	if withDrift {
-		dStep = min(2*step/span, 300e-6)
-	}
-	try := func(o, d float64) bool {
-		if math.Abs(d) > maxDrift {
-			return false
-		}
-		if c := cost(o, d); c < best {
-			best, offset, drift = c, o, d
-			return true
-		}
-		return false
-	}
-	for step > 5e-4 {
-		moved := try(offset+step, drift) || try(offset-step, drift)
-		if dStep > 0 {
-			moved = try(offset, drift+dStep) || try(offset, drift-dStep) || moved
-		}
-		if !moved {
-			step, dStep = step*0.6, dStep*0.6
-		}
-	}
-	return offset, drift
-}
-
-// jackknife gives standard uncertainties of offset and drift: the scatter of what
-// is found when one block of time is left out (Quenouille 1956, Tukey 1958, from
-// memory). costOf makes the misfit without the readings of [lo, hi).
-func (f *found) jackknife(costOf func(lo, hi float64) misfit, from, to, step, span float64, withDrift bool) {
-	var offsets, drifts []float64
-	for b := range blocks {
-		lo := from + (to-from)*float64(b)/blocks
-		hi := from + (to-from)*float64(b+1)/blocks
-		c := costOf(lo, hi)
-		if v := c(f.offset, f.drift); v != v {
-			continue
-		}
-		o, d := refine(c, f.offset, f.drift, step, span, withDrift)
-		offsets, drifts = append(offsets, o), append(drifts, d)
-	}
-	f.offsetU, f.driftU = scatter(offsets), scatter(drifts)
-}
-
-// scatter is the jackknife's standard uncertainty of estimates that each leave one
-// block out; infinite of fewer than three.
-func scatter(x []float64) float64 {
-	n := float64(len(x))
-	if n < 3 {
-		return math.Inf(1)
-	}
-	mean, sum := 0.0, 0.0
-	for _, v := range x {
-		mean += v / n
-	}
-	for _, v := range x {
-		sum += (v - mean) * (v - mean)
-	}
-	return math.Sqrt((n - 1) / n * sum)
 }

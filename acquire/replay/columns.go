@@ -331,7 +331,7 @@ func (rd *logReader) findTime() error {
 			continue
 		}
 		role, u := rd.heading(c)
-		if role == "t" || role == "" && u.Dim == "s" {
+		if role == "t" || role == "" && u.Dim == "s" || c < len(rd.header) && strings.EqualFold(rd.header[c], "t") {
 			rd.timeCol = c
 			return nil
 		}
@@ -461,10 +461,21 @@ func rangeOf(n int) func(func(int) bool) {
 	}
 }
 
-// settleDecimal settles the decimal mark from the readings and numeric times.
+// settleDecimal settles the decimal mark from the readings and numeric times. A
+// comma before the fraction of the seconds settles what readings like 3,012 leave
+// open.
 func (rd *logReader) settleDecimal(times bool) error {
 	var err error
+	points, commas := false, false
+	for _, s := range rd.sample {
+		points = points || strings.Contains(s.cells[rd.valueCol], ".")
+		at := max(rd.clockCol, rd.timeCol)
+		commas = commas || strings.Contains(s.cells[at], ":") && strings.Contains(s.cells[at], ",")
+	}
 	rd.mark, err = rd.text.Decimal(rd.delim, func(yield func([]byte) bool) {
+		if commas && !points && !yield([]byte("0,5")) {
+			return
+		}
 		for row := range rd.text.Rows(rd.delim) {
 			if row.Comment || row.Line <= rd.log.Found.Header {
 				continue

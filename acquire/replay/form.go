@@ -52,10 +52,12 @@ func (rd *logReader) settleForm() error {
 		v := rd.values(rd.timeCol)
 		*f = unixForm(v[len(v)/2])
 		if *f == Elapsed && u.Dim != "" {
-			if u.Dim != "s" && u.Dim != "S" {
+			if u.Dim == "min" {
 				return rd.text.Refuse(rd.log.Found.Header, "give them in seconds", "the times are in %s, which is not read", u.Text)
 			}
-			rd.timeScale = u
+			if u.Dim == "s" {
+				rd.timeScale = u
+			}
 		}
 	default:
 		return rd.text.Refuse(rd.sample[0].line, "--map t=COLUMN names the column of times", "column %s holds no times", rd.title(rd.timeCol))

@@ -267,7 +267,7 @@ func (o *origins) witness(l *Log, before, behind float64) *Log {
 		gap := 0.0
 		for i := range w.Entries {
 			at := w.Entries[i].At
-			if o.kinds[w] != fromZero && at > before+60 && at < behind-60 {
+			if o.kinds[w] != fromZero && at > before+10 && at < behind-10 {
 				return w
 			}
 			if i > 0 {

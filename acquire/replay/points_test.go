@@ -16,7 +16,7 @@ import (
 // gives its current, within the bound of the point and what the digits of the
 // current come to.
 func TestPointsOfJoinedLogs(t *testing.T) {
-	seeds := 2
+	seeds := 1
 	if long {
 		seeds = 12
 	}

@@ -278,8 +278,8 @@ func (s *stamp) fits(form Form) bool {
 	return false
 }
 
-// held are the words by which a meter says that its display is no fresh reading.
-var held = map[string]string{
+// notFresh are the words by which a meter says that its display is no fresh reading.
+var notFresh = map[string]string{
 	"HOLD": "held", "HLD": "held", "H": "", "REL": "relative to another reading", "DELTA": "relative to another reading", "ZERO": "",
 	"MAX": "a maximum", "MIN": "a minimum", "PEAK": "a peak", "PMAX": "a maximum", "PMIN": "a minimum", "AVG": "",
 }
@@ -321,7 +321,7 @@ func (rd *logReader) readingOf(cells [][]byte) (r record.Reading, why string) {
 		for i, c := range cells {
 			if i != rd.valueCol && i != rd.timeCol && len(c) <= 40 {
 				for _, w := range strings.Fields(strings.ToUpper(string(c))) {
-					if said := held[w]; said != "" {
+					if said := notFresh[w]; said != "" {
 						r.Refused = said
 					}
 				}

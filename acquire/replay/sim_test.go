@@ -190,7 +190,7 @@ func clockError(s *Session, ms map[string]simLog, role string, at float64) float
 }
 
 func TestClocksAreFoundAgain(t *testing.T) {
-	seeds := 3
+	seeds := 1
 	if long {
 		seeds = 24
 	}
