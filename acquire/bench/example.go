@@ -104,11 +104,11 @@ current_limit = "1 A"
 voltage = "12 V"           # when it is on
 
   [supply.commands]        # only where they are not the usual ones; %g is the value
-  set = "VSET2:%g"
-  limit = "ISET2:%g"
-  on = "OUT2:1"
-  off = "OUT2:0"
-  read = "VOUT2?"
+  set = "U2 %g"
+  limit = "I2 %g"
+  on = "ON 2"
+  off = "OFF 2"
+  read = "U2?"
   identify = "*IDN?"
   errors = "SYST:ERR?"
 `
