@@ -2,6 +2,7 @@ package acquire
 
 import (
 	"math"
+	"sort"
 
 	"gatesill/store/record"
 )
@@ -99,12 +100,11 @@ func (c *channel) on(i instant) (conversion, bool) {
 	if !c.sameLine(i.pace) {
 		return conversion{}, false
 	}
-	for k := c.from(i.c.t); k < len(c.convs) && c.convs[k].at <= i.c.at; k++ {
-		if c.convs[k].at == i.c.at && c.convs[k].number() {
-			return c.convs[k], true
-		}
+	k := sort.Search(len(c.convs), func(k int) bool { return c.convs[k].at >= i.c.at })
+	if k == len(c.convs) || c.convs[k].at != i.c.at || !c.convs[k].number() {
+		return conversion{}, false
 	}
-	return conversion{}, false
+	return c.convs[k], true
 }
 
 // line is the straight line through two conversions at t.
