@@ -17,7 +17,7 @@ import (
 var (
 	ErrSource  = errors.New("source of readings")    // what the bench file says of it cannot be used
 	ErrNoReply = errors.New("no reply")              // to a question, in time
-	ErrSetUp = errors.New("refused by instrument") // a set-up line
+	ErrSetUp   = errors.New("refused by instrument") // a set-up line
 	ErrBattery = errors.New("low battery")           // told once each time it begins
 	ErrNoFrame = errors.New("nothing that can be read")
 )

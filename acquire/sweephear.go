@@ -152,8 +152,13 @@ func (e *ears) stuck(role string) bool {
 		id := e.of(Current)
 		return moved(Current, 5, 0.05*math.Abs(id.value)) || moved(Load, 5, 0.05*math.Abs(e.of(Load).value))
 	case Current, Load:
-		// Below ten counts a current may stand still on its display.
-		return !(math.Abs(v.value) <= 10*v.digit) && moved(Gate, 5, 0.02)
+		// Below ten counts a current may stand still on its display, and where a count
+		// is not known, below what counts as a current at all.
+		least := noCurrent
+		if v.digit > 0 {
+			least = 10 * v.digit
+		}
+		return math.Abs(v.value) > least && moved(Gate, 5, 0.02)
 	}
 	return false
 }

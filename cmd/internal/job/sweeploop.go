@@ -93,6 +93,7 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 // take passes an event on: to the store, to the interlock, to the stage.
 func (w *sweeper) take(e acquire.Event, s stage) error {
 	e = w.exchanged(e)
+	w.resolve(e)
 	if err := w.hear(e); err != nil {
 		return err
 	}
@@ -141,11 +142,28 @@ func (w *sweeper) shown() map[string]acquire.Shown {
 func (w *sweeper) hand(v float64) { w.handAt(v, false) }
 
 func (w *sweeper) handAt(v float64, creep bool) {
-	if w.sim == nil || w.drive != nil {
+	if w.sim == nil || w.sim.Supplies()["gate"] != "" { // a driven gate has no knob
 		return
 	}
 	if err := w.sim.turn(v, creep); err != nil {
 		w.say("%v", err)
+	}
+}
+
+// resolve fills in one count of the display from the bench file where a reading
+// does not tell it itself.
+func (w *sweeper) resolve(e acquire.Event) {
+	for i := range e.Readings {
+		r := &e.Readings[i]
+		x, number := r.Value.Get()
+		if r.Digit.IsKnown() || !number {
+			continue
+		}
+		for _, m := range w.bench.Meters {
+			if a, ok := m.Range(x); ok && m.Role == r.Role && a.Resolution > 0 {
+				r.Digit = record.Known(a.Resolution)
+			}
+		}
 	}
 }
 

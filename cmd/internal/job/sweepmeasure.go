@@ -327,7 +327,7 @@ type measuring struct {
 func (m *measuring) event(e acquire.Event) { m.obey(m.r.Event(e)) }
 func (m *measuring) tick(at float64) {
 	m.obey(m.r.Tick(at))
-	if m.w.sim != nil {
+	if m.w.sim != nil && !m.drives {
 		h := m.r.Hand()
 		m.w.handAt(h.To, h.Creep)
 	}
