@@ -108,7 +108,8 @@ type listener struct {
 	recorded bool   // a log: it answers no questions
 	start    time.Time
 	emit     func(Event)
-	now      func() time.Time // during conversations; calls bring their own time
+	now      func() time.Time // after conversations; calls bring their own time
+	patience time.Duration    // with a reply while setting up
 
 	decoder meter.Decoder
 	steady  map[int]*meter.Steady // by column
@@ -119,6 +120,7 @@ type listener struct {
 	buf      []byte
 	chunks   []listenChunk // what buf came in by
 	last     time.Time     // when bytes came last
+	floor    time.Time     // before which no further frame began
 	cut      bool          // up to the first end of a line, its beginning may be missing
 	garbage  int           // bytes since the last frame that belonged to none
 	poll     listenPoll
@@ -149,7 +151,7 @@ func newListener(s Source, start time.Time, emit func(Event)) (*listener, port.S
 	if err != nil {
 		return nil, settings, fmt.Errorf("%s: %w", s.Address, err)
 	}
-	l := &listener{Source: s, format: f, start: start, emit: emit, now: time.Now,
+	l := &listener{Source: s, format: f, start: start, emit: emit, now: time.Now, patience: setUpReply,
 		recorded: strings.HasPrefix(s.Address, "log:"),
 		steady:   map[int]*meter.Steady{}, battery: map[int]bool{}}
 	if len(s.Columns) == 0 {

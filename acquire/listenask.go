@@ -1,7 +1,7 @@
 package acquire
 
 import (
-	"bytes"
+	"errors"
 	"fmt"
 	"regexp"
 	"strconv"
@@ -9,13 +9,13 @@ import (
 	"time"
 
 	"gatesill/acquire/port"
+	"gatesill/acquire/scpi"
 )
 
 const (
 	askFloor    = time.Second      // shortest time-out of a question
 	askLongest  = 10 * time.Second // of the pause after questions that were not answered
 	setUpReply  = 5 * time.Second  // a reset takes some seconds
-	errorReads  = 40               // some instruments report a fault of theirs again and again
 	replyLength = 32               // bytes of a reply that varies
 )
 
@@ -104,10 +104,12 @@ func (l *listener) tick(c port.Conn, at time.Time) error {
 	if err := send(c, string(l.question)); err != nil {
 		return err
 	}
-	p.asked, p.at = true, at
-	if p.due = p.due.Add(time.Duration(l.Every * float64(time.Second))); p.due.Before(at) {
-		p.due = at // late by a whole period: from now on
+	p.asked, p.at, l.floor = true, at, at
+	every := time.Duration(l.Every * float64(time.Second))
+	if p.due.Add(every).Before(at) { // the first, or late by a whole period: from now on
+		p.due = at
 	}
+	p.due = p.due.Add(every)
 	return port.Expect(c, l.timeout())
 }
 
@@ -119,8 +121,8 @@ func send(c port.Conn, text string) error {
 	return err
 }
 
-// setUp sends the set-up lines. With scpi each is a conversation: the queue of
-// errors is read after it, and a line that was refused is named.
+// setUp sends the set-up lines. With scpi each is a conversation: it must be done
+// and not be refused before the next is sent.
 func (l *listener) setUp(c port.Conn) error {
 	if l.format.Name != "scpi" {
 		for _, line := range l.Setup {
@@ -133,44 +135,23 @@ func (l *listener) setUp(c port.Conn) error {
 		}
 		return nil
 	}
-	t := &talk{c: c, now: l.now}
-	known := map[int]bool{} // errors that stay however often the queue is emptied
-	cleared := false
+	t := scpi.New(c, scpi.Options{Timeout: l.patience})
 	for i, line := range l.Setup {
 		line = strings.TrimSpace(line)
-		remote := isRemote(line)
-		if !cleared && !remote { // some take nothing at all before SYST:REM
-			cleared = true
-			if err := send(c, "*CLS\n"); err != nil {
-				return err
-			}
-			old, err := t.errors()
-			if err != nil {
-				return fmt.Errorf("%s: before the set-up: %w", l.Address, err)
-			}
-			for _, e := range old {
-				known[e.code] = true
-			}
+		var err error
+		switch {
+		case isRemote(line): // not known where there is no local state
+			err = t.Remote()
+		case strings.Contains(line, "?"):
+			_, err = t.Query(line, 0)
+		default:
+			err = t.Do(line)
 		}
-		if err := send(c, line+"\n"); err != nil {
-			return err
-		}
-		if strings.Contains(line, "?") {
-			if _, err := t.reply(line); err != nil {
-				return fmt.Errorf("%s: set-up line %d, %q: %w", l.Address, i+1, line, err)
-			}
-		}
-		errs, err := t.errors()
-		if err != nil {
+		var refused *scpi.Refused
+		if errors.As(err, &refused) {
+			return fmt.Errorf("%s: set-up line %d, %q: %w: %d %s", l.Address, i+1, line, ErrSetUp, refused.Code, refused.Text)
+		} else if err != nil {
 			return fmt.Errorf("%s: set-up line %d, %q: %w", l.Address, i+1, line, err)
-		}
-		for _, e := range errs {
-			// Before the queue was emptied it may hold anything; and where there is no
-			// local state SYST:REM is not known.
-			if remote && (!cleared || e.code == -113) || known[e.code] {
-				continue
-			}
-			return fmt.Errorf("%s: set-up line %d, %q: %w: %s", l.Address, i+1, line, ErrSetUp, e.text)
 		}
 	}
 	return nil
@@ -178,72 +159,5 @@ func (l *listener) setUp(c port.Conn) error {
 
 func isRemote(line string) bool {
 	f := strings.ToUpper(strings.TrimPrefix(strings.TrimSpace(line), ":"))
-	return f == "SYST:REM" || f == "SYSTEM:REMOTE" || f == "SYST:RWL" || f == "SYSTEM:RWLOCK"
-}
-
-// talk is a conversation of lines, one question at a time.
-type talk struct {
-	c    port.Conn
-	now  func() time.Time
-	rest []byte
-}
-
-// reply waits for one line. Empty lines and the echo of the question are dropped.
-func (t *talk) reply(question string) (string, error) {
-	if err := port.Expect(t.c, setUpReply); err != nil {
-		return "", err
-	}
-	until := t.now().Add(setUpReply)
-	buf := make([]byte, 512)
-	for {
-		for {
-			i := bytes.IndexAny(t.rest, "\r\n")
-			if i < 0 {
-				break
-			}
-			line := strings.TrimSpace(string(t.rest[:i]))
-			t.rest = t.rest[i+1:]
-			if line != "" && line != question {
-				return line, nil
-			}
-		}
-		if !t.now().Before(until) || len(t.rest) > 4096 {
-			return "", fmt.Errorf("%w to %q within %v", ErrNoReply, question, setUpReply)
-		}
-		n, err := t.c.Read(buf)
-		if err != nil {
-			return "", err
-		}
-		t.rest = append(t.rest, buf[:n]...)
-	}
-}
-
-type instrumentError struct {
-	code int
-	text string
-}
-
-// errors empties the queue of errors.
-func (t *talk) errors() ([]instrumentError, error) {
-	const question = "SYST:ERR?"
-	var list []instrumentError
-	for range errorReads {
-		if err := send(t.c, question+"\n"); err != nil {
-			return nil, err
-		}
-		text, err := t.reply(question)
-		if err != nil {
-			return nil, err
-		}
-		number, _, _ := strings.Cut(text, ",")
-		code, err := strconv.Atoi(strings.TrimPrefix(strings.TrimSpace(number), "+"))
-		switch {
-		case err != nil:
-			return nil, fmt.Errorf("%w: %s was answered by %.60q", ErrSetUp, question, text)
-		case code == 0:
-			return list, nil
-		}
-		list = append(list, instrumentError{code, fmt.Sprintf("%.100q", text)})
-	}
-	return list, nil
+	return f == "SYST:REM" || f == "SYSTEM:REMOTE"
 }

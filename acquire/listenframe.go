@@ -26,7 +26,7 @@ func (l *listener) Opened(c port.Conn, at time.Time) error {
 		}
 		at = l.now()
 	}
-	l.cut = l.format.Lines && len(l.question) == 0
+	l.cut, l.floor = l.format.Lines && len(l.question) == 0, at
 	e := l.event(at)
 	e.Opened = true
 	l.emit(e)
@@ -120,9 +120,16 @@ func (l *listener) scan(quiet bool) {
 	}
 }
 
-// began is when the first byte in the buffer began on the wire, at the latest.
+// began is when the first byte in the buffer began on the wire, at the latest: not
+// before the line was open, the question was asked, or the frame before began. Reads
+// that were held up give times that would go back.
 func (l *listener) began() time.Time {
-	return l.chunks[0].at.Add(-time.Duration(l.chunks[0].n) * l.byteTime)
+	at := l.chunks[0].at.Add(-time.Duration(l.chunks[0].n) * l.byteTime)
+	if at.Before(l.floor) {
+		at = l.floor
+	}
+	l.floor = at
+	return at
 }
 
 // skip drops garbage, and tells of it when it is so much that the line's settings or

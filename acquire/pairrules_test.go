@@ -2,26 +2,22 @@ package acquire
 
 import (
 	"cmp"
-	"encoding/json"
 	"fmt"
 	"math"
-	"math/rand/v2"
 	"reflect"
 	"slices"
 	"testing"
 
 	"gatesill/store/record"
-
-	"pgregory.net/rapid"
 )
 
 // said makes the reading of a meter: digits as displayed, in counts of digit.
-func said(role string, at, value, digit float64) record.Reading {
+func saidOf(role string, at, value, digit float64) record.Reading {
 	return record.Reading{Role: role, Meter: role + " meter", At: at, Value: record.Known(rounded(value, digit)), Digit: record.Known(digit),
 		Raw: fmt.Appendf(nil, "%s %.12g", role, value)}
 }
 
-func over(role string, at float64) record.Reading {
+func overOf(role string, at float64) record.Reading {
 	return record.Reading{Role: role, Meter: role + " meter", At: at, State: record.Overload, Raw: []byte(role + " OL")}
 }
 
@@ -30,10 +26,10 @@ func over(role string, at float64) record.Reading {
 func standing(from, to, vg, id float64) []record.Reading {
 	var rs []record.Reading
 	for k := range int((to - from) / 0.3) {
-		rs = append(rs, said(Gate, from+0.3*float64(k), vg, 1e-3))
+		rs = append(rs, saidOf(Gate, from+0.3*float64(k), vg, 1e-3))
 	}
 	for k := range int((to - from) / 0.4) {
-		rs = append(rs, said(Current, from+0.05+0.4*float64(k), id, 1e-5))
+		rs = append(rs, saidOf(Current, from+0.05+0.4*float64(k), id, 1e-5))
 	}
 	return byTime(rs)
 }
@@ -124,10 +120,10 @@ func TestStandingStill(t *testing.T) {
 	}
 	base := func() []record.Reading { return standing(0, 6, 3, 20e-3) }
 	gate := func(f func(at float64) float64) []record.Reading {
-		return change(base(), Gate, func(_ int, r *record.Reading) bool { *r = said(Gate, r.At, f(r.At), 1e-3); return true })
+		return change(base(), Gate, func(_ int, r *record.Reading) bool { *r = saidOf(Gate, r.At, f(r.At), 1e-3); return true })
 	}
 	id := func(digit float64, f func(at float64) float64) []record.Reading {
-		return change(base(), Current, func(_ int, r *record.Reading) bool { *r = said(Current, r.At, f(r.At), digit); return true })
+		return change(base(), Current, func(_ int, r *record.Reading) bool { *r = saidOf(Current, r.At, f(r.At), digit); return true })
 	}
 	back := func(at float64) float64 { return 3 + 1e-3*math.Mod(math.Round(at/0.3), 4) } // 0 1 2 3 0 1 2 3 mV
 	count("flicker of 3 counts", gate(back), exact(), 0)
@@ -158,7 +154,7 @@ func TestLeftOut(t *testing.T) {
 		{"lost", func(*record.Reading) bool { return false }, func(r Report) int { return r.Gaps }, 0},
 		{"held", func(r *record.Reading) bool { r.Refused = "held"; return true }, func(r Report) int { return r.Refused }, 0},
 		{"wild", func(r *record.Reading) bool { r.Value = record.Known(0.3012); return true }, func(r Report) int { return r.Jumps }, 0},
-		{"overload", func(r *record.Reading) bool { *r = over(Gate, r.At); return true }, func(r Report) int { return r.States }, 0},
+		{"overload", func(r *record.Reading) bool { *r = overOf(Gate, r.At); return true }, func(r Report) int { return r.States }, 0},
 		{"earlier than the last", func(r *record.Reading) bool { r.At = 0.7; return true }, func(r Report) int { return r.Refused }, 0},
 		{"no time", func(r *record.Reading) bool { r.At = math.NaN(); return true }, func(r Report) int { return r.Refused }, 0},
 	} {
@@ -195,7 +191,7 @@ func TestLeftOut(t *testing.T) {
 	// Sent twice half a cycle apart, it takes the bench file to know.
 	twice = twice[:0]
 	for k := range 60 {
-		twice = append(twice, said(Gate, 0.15*float64(k), 3+1e-3*float64(k/2%2), 1e-3), said(Current, 0.01+0.15*float64(k), 0.02, 1e-5))
+		twice = append(twice, saidOf(Gate, 0.15*float64(k), 3+1e-3*float64(k/2%2), 1e-3), saidOf(Current, 0.01+0.15*float64(k), 0.02, 1e-5))
 	}
 	p := exact()
 	p.Twice = map[string]bool{Gate: true}
@@ -215,11 +211,11 @@ func TestGapsOnTheMove(t *testing.T) {
 		var rs []record.Reading
 		for k := range 60 {
 			at := 0.3 * float64(k)
-			rs = append(rs, said(Gate, at, 2.8+5e-3*at, 1e-3))
+			rs = append(rs, saidOf(Gate, at, 2.8+5e-3*at, 1e-3))
 		}
 		for k := range 45 {
 			at := 0.05 + 0.4*float64(k)
-			rs = append(rs, said(Current, at, 1e-3*math.Exp(at/10), 1e-6))
+			rs = append(rs, saidOf(Current, at, 1e-3*math.Exp(at/10), 1e-6))
 		}
 		return byTime(rs)
 	}
@@ -251,7 +247,7 @@ func TestGapsOnTheMove(t *testing.T) {
 		{"lost", Gate, func(k int, r *record.Reading) bool { return k != 30 }, instant(28), instant(32)},
 		{"overload", Gate, func(k int, r *record.Reading) bool {
 			if k == 30 {
-				*r = over(Gate, r.At)
+				*r = overOf(Gate, r.At)
 			}
 			return true
 		}, instant(28), instant(33)},
@@ -270,7 +266,7 @@ func TestGapsOnTheMove(t *testing.T) {
 	// Of the current: overload gives no point on the move, nor does what follows it.
 	points, _ := Pair(change(moving(), Current, func(k int, r *record.Reading) bool {
 		if k == 20 {
-			*r = over(Current, r.At)
+			*r = overOf(Current, r.At)
 		}
 		return true
 	}), exact())
@@ -299,7 +295,7 @@ func TestGapsOnTheMove(t *testing.T) {
 
 // A current over the range while the gate stands still is a point of its own kind.
 func TestOverloadOfTheCurrent(t *testing.T) {
-	rs := change(standing(0, 6, 3.3, 1), Current, func(_ int, r *record.Reading) bool { *r = over(Current, r.At); return true })
+	rs := change(standing(0, 6, 3.3, 1), Current, func(_ int, r *record.Reading) bool { *r = overOf(Current, r.At); return true })
 	points, _ := Pair(rs, exact())
 	wantSettled(t, "overload", points, 3.3)
 	want := []record.Mark{{Quantity: record.ID, State: record.Overload, Raw: "current OL"}}
@@ -309,7 +305,7 @@ func TestOverloadOfTheCurrent(t *testing.T) {
 	// Not when a number was among them.
 	rs = change(standing(0, 2.4, 3.3, 1), Current, func(k int, r *record.Reading) bool {
 		if k != 3 {
-			*r = over(Current, r.At)
+			*r = overOf(Current, r.At)
 		}
 		return true
 	})
@@ -355,13 +351,13 @@ func TestLostAndStuck(t *testing.T) {
 	frozen = append(frozen, standing(4, 12, 3, 0.02)...)
 	frozen = change(frozen, Current, func(k int, r *record.Reading) bool {
 		if r.At > 3.5 {
-			*r = said(Current, r.At, 0.02+0.01*math.Min(4, math.Floor(r.At-2.5)), 1e-5)
+			*r = saidOf(Current, r.At, 0.02+0.01*math.Min(4, math.Floor(r.At-2.5)), 1e-5)
 		}
 		return true
 	})
 	frozen = change(frozen, Gate, func(k int, r *record.Reading) bool {
 		if k < 10 {
-			*r = said(Gate, r.At, 2.9, 1e-3)
+			*r = saidOf(Gate, r.At, 2.9, 1e-3)
 		}
 		return true
 	})
@@ -379,7 +375,7 @@ func TestLostAndStuck(t *testing.T) {
 	}
 	// A part that warms up by 3 %/s at a steady gate is no frozen meter, but worth a look.
 	warm := change(standing(0, 8, 3, 0.02), Current, func(_ int, r *record.Reading) bool {
-		*r = said(Current, r.At, 0.02*(1+0.1*(1-math.Exp(-r.At/2))), 1e-5)
+		*r = saidOf(Current, r.At, 0.02*(1+0.1*(1-math.Exp(-r.At/2))), 1e-5)
 		return true
 	})
 	points, report = Pair(warm, exact())
@@ -395,190 +391,4 @@ func TestLostAndStuck(t *testing.T) {
 	if s := q.State(4); s.Settled || !(s.Wait > 0.4 && s.Wait < 0.9) || s.Why == "" {
 		t.Errorf("%+v", s)
 	}
-}
-
-// A meter whose display changes its range: the first conversion on the new one and the one
-// after are left out; text whose trailing zeros are dropped is not a change of range.
-func TestChangeOfRange(t *testing.T) {
-	rs := change(standing(0, 8, 3, 0.02), Current, func(k int, r *record.Reading) bool {
-		if k >= 8 {
-			r.Digit = record.Known(1e-4)
-		}
-		return true
-	})
-	_, report := Pair(rs, exact())
-	if report.RangeChanges != 2 {
-		t.Errorf("%+v", report)
-	}
-	// After an overload the first on the new range is what is left out.
-	rs = change(rs, Current, func(k int, r *record.Reading) bool {
-		if k == 7 {
-			*r = over(Current, r.At)
-		}
-		return true
-	})
-	if _, report := Pair(rs, exact()); report.RangeChanges != 1 || report.States != 1 {
-		t.Errorf("%+v", report)
-	}
-	rs = change(standing(0, 30, 3, 0.02), Gate, func(k int, r *record.Reading) bool {
-		r.Digit = record.Known([]float64{1e-3, 1e-4, 1e-2}[k%3])
-		return true
-	})
-	points, report := Pair(rs, exact())
-	if len(settledOf(points)) != 1 || report.RangeChanges > 10 {
-		t.Errorf("%d points, %+v", len(points), report)
-	}
-}
-
-// Columns of one line are of one instant: no interpolation, no bound, a point a line on
-// the move and one on a plateau.
-func TestLines(t *testing.T) {
-	var rs []record.Reading
-	for k := range 120 {
-		at := 0.1 * float64(k)
-		vg := 2.8 + 0.05*math.Min(at, 6)
-		for _, r := range []record.Reading{said(Current, at, 1e-3*math.Exp(at/4), 1e-6), said(Gate, at, vg, 1e-4), said(Drain, at, 12-at/10, 1e-3)} {
-			r.Meter = "board"
-			if at > 6 {
-				r = said(r.Role, at, map[string]float64{Gate: 3.1, Current: 4.48e-3, Drain: 11.4}[r.Role], r.Digit.Float())
-				r.Meter = "board"
-			}
-			rs = append(rs, r)
-		}
-	}
-	points, _ := Pair(rs, Pairing{Free: true})
-	lines := 0
-	for _, p := range points {
-		if p.Bound != 0 {
-			t.Errorf("bound %g", p.Bound)
-		}
-		if p.Settled {
-			continue
-		}
-		lines++
-		if k := math.Round(10 * p.At); math.Abs(p.Vg-(2.8+0.005*k)) > 1e-9 || math.Abs(p.Vd-(12-k/100)) > 1e-9 || math.Abs(p.Id-rounded(1e-3*math.Exp(k/40), 1e-6)) > 1e-12 {
-			t.Errorf("line %g: %+v", k, p)
-		}
-	}
-	if lines < 55 || lines > 61 {
-		t.Errorf("%d lines gave points", lines)
-	}
-	wantSettled(t, "the end", points, 3.1)
-}
-
-// The other roles come along, as means or as they were last.
-func TestOtherRoles(t *testing.T) {
-	rs := standing(0, 12, 3.012, 0.02)
-	for k := range 30 {
-		rs = append(rs, said(Load, 0.02+0.4*float64(k), 0.1, 1e-4), said(Drain, 0.03+0.4*float64(k), 11.9, 1e-2), said(Supply, 0.04+0.4*float64(k), 12.01, 1e-2))
-	}
-	rs = append(rs, said(Temperature, 0.1, 24.5, 0.1), said(Temperature, 5.1, 25.5, 0.1), said(Temperature, 10.1, 26.5, 0.1))
-	points, _ := Pair(byTime(rs), exact())
-	if len(points) != 1 {
-		t.Fatalf("%d points", len(points))
-	}
-	if p := points[0]; p.Vl != 0.1 || p.Vd != 11.9 || p.Vdd != 12.01 || p.Temp != 24.5 || len(p.Marks) != 0 {
-		t.Errorf("%+v", p)
-	}
-	// With a gate meter alone there is a point too.
-	points, _ = Pair(change(standing(0, 5, 3.012, 0.02), Current, func(int, *record.Reading) bool { return false }), Pairing{Timing: map[string]Timing{Gate: {}}})
-	wantSettled(t, "gate alone", points, 3.012)
-}
-
-// Means are written with a hundredth of a digit and no more, and the text reads back as
-// the numbers.
-func TestColumnsDecimals(t *testing.T) {
-	for _, x := range []struct {
-		v, digit float64
-		want     string
-	}{{3.0123456, 1e-3, "3.01235"}, {2.0015e-5, 1e-6, "0.00002002"}, {0.1 + 0.2, 1e-3, "0.3"}, {12.5, 5, "12.5"}, {12.345, 10, "12.3"},
-		{-0.0000001, 1e-3, "0"}, {-3.0100001, 1e-3, "-3.01"}, {120, 100, "120"}, {1.0 / 3, 0, "0.333333333"}, {0.0049999, 5e-4, "0.005"}} {
-		if got := decimal(x.v, x.digit); got != x.want {
-			t.Errorf("%g with %g: %s, want %s", x.v, x.digit, got, x.want)
-		}
-	}
-	g := rand.New(rand.NewPCG(1, 2))
-	s := simulate(g, stairs(g, 10e-3, 2.6, 3.3), handhelds(g))
-	points, _ := Pair(s.readings, s.pairing)
-	columns, marks := Columns(points)
-	var names []record.Quantity
-	for _, c := range columns {
-		names = append(names, c.Quantity)
-		var back []*float64
-		if err := json.Unmarshal(c.Text, &back); err != nil || len(back) != len(points) {
-			t.Fatalf("%s: %v", c.Quantity, err)
-		}
-		for i, x := range back {
-			if (x == nil) != math.IsNaN(c.Values[i]) || x != nil && *x != c.Values[i] {
-				t.Errorf("%s %d: %v, text %v", c.Quantity, i, c.Values[i], x)
-			}
-		}
-		if d := c.LastDigit(); d < 0.99e-8 {
-			t.Errorf("%s is written to %g", c.Quantity, d)
-		}
-	}
-	if want := []record.Quantity{record.VG, record.ID, record.VL, record.T, record.PairBound, record.Settled}; !slices.Equal(names, want) {
-		t.Errorf("columns %v", names)
-	}
-	sweep := record.Sweep{Direction: record.Up, Position: 1, Columns: columns, Marks: marks}
-	if err := sweep.Validate(); err != nil {
-		t.Error(err)
-	}
-	for i, x := range sweep.Values(record.PairBound) {
-		if x < points[i].Bound {
-			t.Errorf("point %d: bound %g is written as %g", i, points[i].Bound, x)
-		}
-	}
-	if columns, marks := Columns(nil); columns != nil || marks != nil {
-		t.Error("columns of nothing")
-	}
-}
-
-// The points do not depend on when they are taken, nor on the order in which meters
-// are heard within half a second; nor does a list make other points than the stream.
-func TestSamePointsHoweverDealt(t *testing.T) {
-	rapid.Check(t, func(rt *rapid.T) {
-		g := rand.New(rand.NewPCG(rapid.Uint64().Draw(rt, "seed"), 7))
-		b := rapid.SampledFrom(benches[:2]).Draw(rt, "bench")
-		p := stairs(g, rapid.SampledFrom([]float64{4e-3, 30e-3}).Draw(rt, "rate"), 2.95, 3.1)
-		s := simulate(g, p, b.meters(g))
-		var rs []record.Reading // with faults
-		for _, r := range s.readings {
-			switch x := g.Float64(); {
-			case x < 0.003:
-				continue
-			case x < 0.006:
-				r.Refused = "held"
-			case x < 0.009:
-				r.Value = record.Known(r.Value.Float() * 10)
-				if r.State != "" {
-					r.Value = record.Num{}
-				}
-			}
-			rs = append(rs, r)
-		}
-		want, report := Pair(rs, s.pairing)
-		q := NewPairer(s.pairing)
-		var got []Point
-		late := slices.Clone(rs)
-		delay := map[string]float64{Gate: 0.4 * g.Float64(), Current: 0.4 * g.Float64(), Load: 0.4 * g.Float64()}
-		slices.SortStableFunc(late, func(a, b record.Reading) int { return cmp.Compare(a.At+delay[a.Role], b.At+delay[b.Role]) })
-		for _, r := range late {
-			q.Add(r)
-			if g.IntN(10) == 0 {
-				got = append(got, q.Take()...)
-			}
-		}
-		q.Flush()
-		got = append(got, q.Take()...)
-		if len(want) == 0 {
-			rt.Fatal("no points")
-		}
-		if x, y := fmt.Sprintf("%+v", want), fmt.Sprintf("%+v", got); x != y || report != q.Report() {
-			rt.Fatalf("%d and %d points\n%+v\n%+v", len(want), len(got), report, q.Report())
-		}
-		if !slices.IsSortedFunc(got, func(a, b Point) int { return cmp.Compare(a.At, b.At) }) {
-			rt.Fatal("points are not in the order of their instants")
-		}
-	})
 }

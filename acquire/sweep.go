@@ -39,17 +39,18 @@ type Pairs interface {
 // part has negative ones), currents and limits are magnitudes. What is unknown
 // takes the default in brackets.
 type Plan struct {
-	Mode Mode
-	From record.Num // V [the off voltage]
-	To   record.Num // V [where the idle current is passed by 30 %, or the limits are near]
-	Step record.Num // V, magnitude [50 mV until current shows, then finer as the curve demands]
-	Idle record.Num // A, idle current of the lot
+	Mode  Mode
+	From  record.Num // V [the off voltage]
+	To    record.Num // V [where the idle current is passed by 30 %, or the limits are near]
+	Step  record.Num // V, magnitude [50 mV until current shows, then finer as the curve demands]
+	Idle  record.Num // A, idle current of the lot
+	Least record.Num // A, smallest current of interest [a thousandth of the idle current]
 
 	At       record.Num // A, of a spot; [where the circuit sets it]
-	AtWithin float64    // fraction of At that is near enough [0.02]
+	AtWithin float64    // fraction of At that is near enough [0.02, driven 0.005]
 	Settle   record.Num // s, the same wait for every part before a point [until it has settled]
 	Patience float64    // s, of a driven sweep with a point that does not settle [60; spot 900]
-	MinStep  float64    // V, smallest step [2 mV]
+	MinStep  float64    // V, smallest step [2 mV, by hand 5 mV]
 	Window   float64    // V around the voltage told, by hand, at most half a step [half a step]
 
 	Channel    record.Channel // [n]
@@ -66,7 +67,7 @@ type Plan struct {
 
 	Roles  []string           // of the meters at hand
 	Cycle  map[string]float64 // s between readings, by role [learned]
-	Silent map[string]float64 // s without a reading until a meter counts as silent [max(3 cycles, 1 s)]
+	Silent map[string]float64 // s without a reading until a meter counts as silent [max(3.5 cycles, 1 s)]
 	Scale  map[string]float64 // factor on the readings of a role whose meter says the wrong prefix [1]
 
 	Predict Predictor    // [from the last points, on the safe side]
@@ -212,6 +213,9 @@ func (p *Plan) fill() {
 	}
 	if p.AtWithin <= 0 {
 		p.AtWithin = 0.02
+		if p.driven() {
+			p.AtWithin = 0.005
+		}
 	}
 	if p.Patience <= 0 {
 		p.Patience = 60
@@ -221,6 +225,9 @@ func (p *Plan) fill() {
 	}
 	if p.MinStep <= 0 {
 		p.MinStep = 0.002
+		if !p.driven() {
+			p.MinStep = 0.005 // no hand turns finer
+		}
 	}
 	if p.Points <= 0 {
 		p.Points = 12

@@ -27,12 +27,14 @@ type voice struct {
 	any          float64 // s, when the last frame came that could be read, refused ones too
 	state        record.PointState
 	refused      string
+	ranging      bool // the last frame was an overload, or the first on another range
 	number       bool // the last frame was a number that counts
 	frames       int
 	count        int // numbers since the last call of mark
 	gaps         []float64
 	same         int                // equal numbers in a row
 	others       map[string]float64 // what the other roles said when they began to be equal
+	against      int                // of these, the last ones during which another role had moved away
 	bad          int                // frames in a row that could not be read
 }
 
@@ -68,7 +70,9 @@ func (e *ears) hear(r record.Reading) {
 	v.state, v.refused = r.State, r.Refused
 	x, known := r.Value.Get()
 	v.number = known && r.State == "" && r.Refused == ""
-	if r.Refused == "" && (v.number || r.State == record.Overload || r.State == record.Underload) {
+	// A meter that changes its range is not silent.
+	v.ranging = r.State == record.Overload || r.State == record.Underload || r.Refused == "range changed"
+	if r.Refused == "" && v.number || v.ranging {
 		v.heard = r.At
 	}
 	if !v.number {
@@ -81,8 +85,11 @@ func (e *ears) hear(r record.Reading) {
 				v.others[name] = o.value
 			}
 		}
+		if v.against++; !e.contradicted(r.Role) {
+			v.against = 0
+		}
 	} else {
-		v.same = 0
+		v.same, v.against = 0, 0
 	}
 	v.value, v.digit, v.at = x, r.Digit.Float(), r.At
 	v.count++
@@ -122,9 +129,14 @@ func (e *ears) isSilent(role string, now float64) bool {
 	limit := e.silent[role]
 	if limit <= 0 {
 		limit = 1
-		switch t := e.period(role); {
-		case 3*t > 1:
-			limit = 3 * t
+		t := e.period(role)
+		cycles := 3.5 // three, and what arrives late: a change to a lower range costs two conversions
+		if e.of(role).ranging {
+			cycles += 2
+		}
+		switch {
+		case cycles*t > 1:
+			limit = cycles * t
 		case math.IsNaN(t):
 			limit = 3 // how often it speaks is not known yet
 		}
@@ -133,24 +145,26 @@ func (e *ears) isSilent(role string, now float64) bool {
 }
 
 // stuck reports whether the digits of a role stand still although another role
-// says that they cannot. Equal digits alone are nothing: a device that is off
-// draws no current at any gate voltage.
+// says that they cannot, and has said so for several of its conversions. Equal digits alone
+// are nothing: a device that is off draws no current at any gate voltage.
 func (e *ears) stuck(role string) bool {
-	const conversions = 8
 	v := e.of(role)
-	if v.same < conversions || !v.number {
-		return false
-	}
-	moved := func(other string, digits, least float64) bool {
+	return v.number && v.same >= 8 && v.against >= 3
+}
+
+// contradicted reports whether another role has moved since the digits of this one
+// began to be equal.
+func (e *ears) contradicted(role string) bool {
+	v := e.of(role)
+	moved := func(other string, least float64) bool {
 		o := e.of(other)
 		was, ok := v.others[other]
 		d := math.Abs(o.value - was)
-		return ok && o.number && d > least && !(d <= digits*o.digit)
+		return ok && o.number && d > least && !(d <= 5*o.digit)
 	}
 	switch role {
 	case Gate:
-		id := e.of(Current)
-		return moved(Current, 5, 0.05*math.Abs(id.value)) || moved(Load, 5, 0.05*math.Abs(e.of(Load).value))
+		return moved(Current, 0.05*math.Abs(e.of(Current).value)) || moved(Load, 0.05*math.Abs(e.of(Load).value))
 	case Current, Load:
 		// Below ten counts a current may stand still on its display, and where a count
 		// is not known, below what counts as a current at all.
@@ -158,7 +172,7 @@ func (e *ears) stuck(role string) bool {
 		if v.digit > 0 {
 			least = 10 * v.digit
 		}
-		return math.Abs(v.value) > least && moved(Gate, 5, 0.02)
+		return math.Abs(v.value) > least && moved(Gate, 0.02)
 	}
 	return false
 }

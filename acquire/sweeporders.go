@@ -39,8 +39,9 @@ type Beep struct{ Sound Sound }
 // Taken hands over a point of the sweep.
 type Taken struct {
 	Point  Point
-	Return bool // the return reading: a low-power point taken again after the sweep
-	Early  bool // of a spot: taken on a key before it had settled
+	Return bool    // the return reading: a low-power point taken again after the sweep
+	Early  bool    // of a spot: taken on a key before it had settled
+	Slope  float64 // of a spot: A/V, how the current went with the gate voltage near it; 0 not known
 }
 
 // Undone takes back the last N points.

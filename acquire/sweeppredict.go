@@ -16,6 +16,10 @@ const steepest = 38.7
 // the prediction errs on the unsafe side.
 const soar = 0.15
 
+// apart is how far two points must be apart, V, for the slope between them: a digit
+// of a handheld is 1 mV.
+const apart = 0.008
+
 // node is a point as the predictor sees it: u rises where the part turns on, i is a
 // magnitude.
 type node struct{ u, i float64 }
@@ -44,7 +48,7 @@ func nodes(points []Point, sign float64, current func(Point) float64) []node {
 // safePrediction gives a drain current (A, magnitude) that the device will not
 // exceed at u, from the points so far and what is read now. ln I_D over the gate voltage only
 // gets flatter on the way up, so a straight line in ln I_D through the last points
-// lies above the curve; where sqrt I_D has become a straight line too, that one is
+// lies above the curve; as far ahead as sqrt I_D is a straight line too, that one is
 // used with a margin, for it lies closer. Where no current has shown yet it may be
 // just below floor, and rise as steeply as physics allows.
 //
@@ -59,7 +63,7 @@ func safePrediction(ns []node, now node, floor float64) func(u float64) float64 
 		if n.i < floor || n.u > now.u+0.002 { // beyond now: from before the gate went back
 			continue
 		}
-		if len(seen) == 0 || seen[len(seen)-1].u-n.u >= 0.003 {
+		if len(seen) == 0 || seen[len(seen)-1].u-n.u >= apart {
 			seen = append(seen, n)
 		}
 	}
@@ -71,25 +75,26 @@ func safePrediction(ns []node, now node, floor float64) func(u float64) float64 
 		return func(u float64) float64 { return here * math.Exp(steepest*math.Max(0, u-now.u)) }
 	}
 	a := seen[0]
-	slope, root := steepest, math.NaN()
+	slope, root, bend, half := steepest, math.NaN(), math.NaN(), 0.0
 	if len(seen) > 1 {
 		b := seen[1]
+		half = (a.u - b.u) / 2
 		slope = math.Log(a.i/b.i) / (a.u - b.u) * (1 + soar)
 		slope = math.Min(math.Max(slope, 0), steepest)
 		if len(seen) > 2 {
 			c := seen[2]
 			last := (math.Sqrt(a.i) - math.Sqrt(b.i)) / (a.u - b.u)
 			before := (math.Sqrt(b.i) - math.Sqrt(c.i)) / (b.u - c.u)
-			if last > 0 && last <= (1+soar/2)*before {
-				root = math.Max(last, before) * (1 + soar)
+			if last > 0 && before > 0 {
+				root, bend = math.Max(last, before), math.Max(0, last-before)/((a.u-c.u)/2)
 			}
 		}
 	}
 	from := func(n node, u float64) float64 {
 		d := math.Max(0, u-n.u)
 		i := n.i * math.Exp(slope*d)
-		if !math.IsNaN(root) {
-			i = math.Min(i, math.Pow(math.Sqrt(n.i)+root*d, 2))
+		if bend*(d+half) <= soar*root { // straight enough from the middle of the last two points to there
+			i = math.Min(i, math.Pow(math.Sqrt(n.i)+root*(1+soar)*d, 2))
 		}
 		return i
 	}
@@ -103,7 +108,7 @@ func safePrediction(ns []node, now node, floor float64) func(u float64) float64 
 // caller's predictor says, never below what is read now, else the safe prediction;
 // never more than the circuit lets through.
 func (r *Runner) predict() func(u float64) float64 {
-	now := node{r.sign * r.ears.of(Gate).value, math.Abs(r.idNow())}
+	now := r.here()
 	ns := nodes(r.curve, r.sign, r.idOf)
 	safe := safePrediction(ns, now, r.floor())
 	var given func(float64) (float64, bool)
@@ -121,13 +126,23 @@ func (r *Runner) predict() func(u float64) float64 {
 	}
 }
 
+// here is where a step begins: what is read now, or by hand the last point, while
+// the gate is elsewhere because the sweep is taken up again.
+func (r *Runner) here() node {
+	now := node{r.sign * r.ears.of(Gate).value, math.Abs(r.idNow())}
+	if n := len(r.points); n > 0 && !r.plan.driven() && r.phase == phClimb && math.Abs(now.u-r.target) > nearOff {
+		return node{r.target, r.idOf(r.points[n-1])}
+	}
+	return now
+}
+
 // reach gives how far the gate may go from here, at most by far (V, in the
 // direction that turns on), such that on the whole way no current predicted is above
 // soft and no share of a limit above [stepShare]. It is 0 when the smallest way
 // is too much already. why names the limit that ended it, "" for soft and for far.
 func (r *Runner) reach(far, soft float64) (step float64, why string) {
 	const part = 0.0005
-	here := r.sign * r.ears.of(Gate).value
+	here := r.here().u
 	predict := r.predict()
 	for step < far {
 		next := math.Min(step+part, far)
@@ -181,10 +196,11 @@ func (r *Runner) latest() Point {
 // idNow is the drain current now (A, magnitude), NaN when not fresh.
 func (r *Runner) idNow() float64 { return r.idOf(r.latest()) }
 
-// floor is the smallest drain current (A) that counts as one: well above the last
-// digit, and above what a supply voltage that was not read can feign.
+// floor is the smallest drain current (A) that counts as one: of interest, well
+// above the last digit, and above what a supply voltage that was not read can
+// feign.
 func (r *Runner) floor() float64 {
-	const least = 20e-6
+	least := math.Max(20e-6, r.plan.Least.Else(record.Known(math.Abs(r.plan.Idle.Float())/1000)).Or(0))
 	digits := func(role string, by float64) float64 {
 		if d := r.ears.of(role).digit; d > 0 && by > 0 {
 			return math.Max(least, 5*d/by)

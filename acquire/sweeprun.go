@@ -25,10 +25,12 @@ const (
 	nearOff   = 0.2  // V from the off voltage that count as off
 	noCurrent = 1e-3 // A below which a device counts as carrying none
 	badFrames = 3    // frames in a row that cannot be read until a line counts as bad
+	leadIn    = 0.25 // s after a driven gate was sent on: what comes sooner was measured before
 	coarse    = 0.05 // V, step until current shows, and greatest step after that
 	approach  = 0.25 // V, greatest step on the way to where the sweep begins
 	endTime   = 5.0  // s for the current to go at the end of a driven sweep
 	offTime   = 10.0 // s for the gate to reach its off voltage at the beginning
+	ohmic     = 0.85 // of the greatest current of the circuit: the device is fully on
 	beyond    = 1.3  // times the idle current: far enough for a fit on both sides of it
 )
 
@@ -175,15 +177,31 @@ func (r *Runner) Event(e Event) []Order {
 	}
 	for _, rd := range e.Readings {
 		rd = r.prefix.Apply(rd)
+		r.turned(rd)
 		r.ears.hear(rd)
 		r.guard.Add(rd)
-		r.pairs.Add(rd)
+		if !r.plan.driven() || rd.At >= r.setAt+leadIn {
+			r.pairs.Add(rd)
+		}
 	}
 	if len(e.Readings) > 0 {
 		r.watch()
 		r.progress()
 	}
 	return r.give()
+}
+
+// turned begins to look for a plateau anew when a gate turned by hand is read
+// elsewhere than before: what the other meters said while it moved must not be
+// averaged into the plateau that follows.
+func (r *Runner) turned(rd record.Reading) {
+	if rd.Role != Gate || r.plan.driven() || r.phase != phReturn && !(r.phase == phClimb && r.plan.Mode == ByHand) {
+		return
+	}
+	before := r.ears.of(Gate)
+	if x, ok := rd.Value.Get(); ok && math.Abs(x-before.value) > math.Max(0.003, 3*rd.Digit.Or(0)) {
+		r.fresh()
+	}
 }
 
 // Tick tells that time passes.
@@ -516,9 +534,18 @@ func (r *Runner) begin() {
 		r.bring()
 		return
 	}
-	if n := len(r.points); n > 0 && r.plan.driven() { // taken up again: up to where it was
-		r.regain = true
-		r.head(r.targets[n-1])
+	if n := len(r.points); n > 0 { // taken up again: up to where it was
+		r.target, r.goal = r.targets[n-1], math.NaN()
+		switch {
+		case r.plan.driven():
+			r.target = r.sign * r.plan.Off()
+			r.regain = true
+			r.head(r.targets[n-1])
+		case r.plan.Mode == ByHand:
+			r.next()
+		default:
+			r.say("%s", r.instruction())
+		}
 		return
 	}
 	from := r.sign * r.plan.From.Or(r.plan.Off())

@@ -65,7 +65,7 @@ func (r *Runner) bringing() {
 	if math.IsNaN(id) {
 		return
 	}
-	within := r.plan.AtWithin * at
+	within := r.within(at)
 	if !r.plan.driven() {
 		r.trace(u)
 		if math.Abs(id-at) > within {
@@ -115,7 +115,7 @@ func (r *Runner) bringing() {
 
 // trace keeps what is read on the way to the current, for the slope.
 func (r *Runner) trace(u float64) {
-	if n := len(r.curve); n == 0 || math.Abs(r.sign*r.curve[n-1].Vg-u) >= 0.003 {
+	if n := len(r.curve); n == 0 || u-r.sign*r.curve[n-1].Vg >= 0.003 { // on the way up
 		r.curve = append(r.curve, r.latest())
 		if len(r.curve) > 400 {
 			r.curve = r.curve[200:]
@@ -123,24 +123,40 @@ func (r *Runner) trace(u float64) {
 	}
 }
 
-// slopeAt is dI_D/dV_GS near the current of the spot (A/V), from what was read on
-// the way; NaN not known.
+// slopeAt is dI_D/dV_GS at the current of the spot (A/V): a straight line of sqrt I_D
+// through what was read on the way there, from 0.4 of the current on, so that
+// readings which do not belong to one instant shift the line but hardly tilt it.
+// NaN not known.
 func (r *Runner) slopeAt() float64 {
 	at := r.plan.At.Float()
-	best, g := math.Inf(1), math.NaN()
-	ns := nodes(r.curve, r.sign, r.idOf)
-	for i, a := range ns {
-		for _, b := range ns[i+1:] {
-			du, di := b.u-a.u, b.i-a.i
-			if du < 0.003 || di < 0.02*at {
-				continue
-			}
-			if d := math.Abs((a.i+b.i)/2-at) + di/2; d < best && a.i > 0 {
-				best, g = d, di/du
-			}
+	var n, su, sy, suu, suy float64
+	lo, hi := math.Inf(1), math.Inf(-1)
+	for _, p := range r.curve {
+		u, i := r.sign*p.Vg, r.idOf(p)
+		if !(i >= 0.4*at && i <= 1.1*at) || math.IsNaN(u) {
+			continue
 		}
+		y := math.Sqrt(i)
+		n, su, sy, suu, suy = n+1, su+u, sy+y, suu+u*u, suy+u*y
+		lo, hi = math.Min(lo, u), math.Max(hi, u)
 	}
-	return g
+	if n < 2 || hi-lo < 0.01 {
+		return math.NaN()
+	}
+	if b := (n*suy - su*sy) / (n*suu - su*su); b > 0 {
+		return 2 * b * math.Sqrt(at)
+	}
+	return math.NaN()
+}
+
+// within is how far the current may be from that of the spot, A: a supply that goes
+// in steps of 1 mV comes no nearer than half of one.
+func (r *Runner) within(at float64) float64 {
+	w := r.plan.AtWithin * at
+	if g := r.slopeAt(); r.plan.driven() && g > 0 {
+		w = math.Max(w, 0.0006*g)
+	}
+	return w
 }
 
 // trim is the way (V) that changes the current by di (A): half of a
@@ -196,7 +212,7 @@ func (r *Runner) soaking(points []Point) {
 			r.fresh()
 		}
 	}
-	if has && !math.IsNaN(id) && math.Abs(id-at) > r.plan.AtWithin*at && !r.retrim(id, at) {
+	if has && !math.IsNaN(id) && math.Abs(id-at) > r.within(at) && !r.retrim(id, at) {
 		return
 	}
 	if !r.plan.Settle.IsKnown() {
@@ -205,13 +221,17 @@ func (r *Runner) soaking(points []Point) {
 	if s.latest == nil || !r.ripe && !r.wanted || !r.all() {
 		return
 	}
-	if i := r.idOf(*s.latest); has && math.Abs(i-at) > 1.5*r.plan.AtWithin*at {
+	if i := r.idOf(*s.latest); has && math.Abs(i-at) > 1.5*r.within(at) {
 		s.latest = nil
 		return
 	}
 	p := *s.latest
 	r.points, r.targets = append(r.points, p), append(r.targets, r.target)
-	r.emit(Taken{Point: p, Early: !r.ripe})
+	slope := r.slopeAt()
+	if !(slope > 0) {
+		slope = 0
+	}
+	r.emit(Taken{Point: p, Early: !r.ripe, Slope: slope})
 	r.sound(SoundAccept)
 	r.why, r.complete = "the gate voltage has settled", true
 	switch {
@@ -229,7 +249,7 @@ func (r *Runner) soaking(points []Point) {
 func (r *Runner) retrim(id, at float64) bool {
 	s := &r.soak
 	if !r.plan.driven() {
-		if math.Abs(id-at) <= 1.5*r.plan.AtWithin*at {
+		if math.Abs(id-at) <= 1.5*r.within(at) {
 			return true
 		}
 		if !s.told {

@@ -243,7 +243,7 @@ func (r *Runner) lastCurrent() float64 {
 	if m := r.plan.Limits.ID; m > 0 {
 		i = math.Min(i, stepShare*m)
 	}
-	if m, vds := r.plan.Limits.PD, r.guard.drain(); m > 0 && vds > 0 {
+	if m, vds := r.plan.Limits.PD, r.guard.open(); m > 0 && vds > 0 && !(r.guard.mostPower() <= stepShare*m) {
 		i = math.Min(i, stepShare*m/vds)
 	}
 	return i
@@ -256,8 +256,10 @@ func (r *Runner) far(u, id float64) (why string, ok bool) {
 		return "the end of the sweep", true
 	case u >= r.end()-1e-6:
 		return "the greatest gate voltage is reached", true
-	case id >= r.lastCurrent()*0.999:
-		if idle, known := r.plan.Idle.Get(); known && id >= beyond*math.Abs(idle)*0.999 {
+	case !r.plan.To.IsKnown() && id >= ohmic*r.guard.most():
+		return "the load resistor sets the current", true
+	case id >= r.lastCurrent()*0.98:
+		if idle, known := r.plan.Idle.Get(); known && id >= beyond*math.Abs(idle)*0.98 {
 			return fmt.Sprintf("the idle current is passed by %.0f %%", 100*(beyond-1)), true
 		}
 		return "as near to the limits as a sweep goes", true
@@ -298,6 +300,9 @@ func (r *Runner) next() {
 	} else if r.seen {
 		base := math.Max(id, r.floor())
 		soft = 2 * base
+		if hand {
+			soft = 3 * base // a point by hand costs more
+		}
 		if last := r.lastCurrent(); !math.IsInf(last, 1) {
 			soft = math.Min(soft, base+last/float64(r.plan.Points))
 		} else if base > 0.01 {
@@ -306,7 +311,7 @@ func (r *Runner) next() {
 	}
 	far = math.Min(far, r.end()-u)
 	step, why := r.reach(far, soft)
-	if step < far-1e-9 {
+	if step < far-1e-9 || hand && !stepped {
 		// Round the place, not the way: 3.150 V is easier to turn to than 3.147 V.
 		if rounded := whole(u+step, unit) - u; rounded >= r.plan.MinStep {
 			step = rounded

@@ -194,7 +194,7 @@ func (r *Runner) climbing() string {
 		return "stand still until the point is taken"
 	case math.IsNaN(r.goal):
 		return fmt.Sprintf("turn the gate slowly %s until current shows (%s), then stand still", more, show(r.floor(), "A"))
-	case !math.IsNaN(r.arrivedAt):
+	case math.Abs(r.sign*r.ears.number(Gate, r.now)-r.goal) <= math.Min(r.window, 0.004):
 		return "stand still at " + show(r.sign*r.goal, "V")
 	}
 	return "turn to " + show(r.sign*r.goal, "V")
@@ -202,7 +202,7 @@ func (r *Runner) climbing() string {
 
 func (r *Runner) settling() string {
 	at, has := r.plan.At.Get()
-	if id := r.idNow(); has && !r.plan.driven() && math.Abs(id-at) > 1.5*r.plan.AtWithin*at {
+	if id := r.idNow(); has && !r.plan.driven() && math.Abs(id-at) > 1.5*r.within(at) {
 		return fmt.Sprintf("bring the current back to %s; it is %s", show(at, "A"), show(id, "A"))
 	}
 	if s, ok := r.plan.Settle.Get(); ok && !r.ripe {

@@ -15,25 +15,31 @@ type commands map[string]string
 // standard is SCPI's way (SCPI-1999 SOURce, OUTPut, MEASure, INSTrument and the
 // common commands of IEEE 488.2).
 var standard = commands{
-	"identify": "*IDN?",
-	"clear":    "*CLS",
-	"errors":   "SYST:ERR?",
-	"complete": "*OPC?",
-	"select":   "INST:NSEL %d",
-	"set":      "VOLT %g",
-	"set?":     "VOLT?",
-	"limit":    "CURR %g",
-	"limit?":   "CURR?",
-	"on":       "OUTP ON",
-	"off":      "OUTP OFF",
-	"on?":      "OUTP?",
-	"says off": "0", // the answer to on? of an output that is off; no command
-	"read":     "MEAS:VOLT?",
-	"watchdog": "", // sent once at the start; the keeper speaks to each supply twice a second
+	"identify":    "*IDN?",
+	"clear":       "*CLS",
+	"errors":      "SYST:ERR?",
+	"complete":    "*OPC?",
+	"select":      "INST:NSEL %d",
+	"set":         "VOLT %g",
+	"set_query":   "VOLT?",
+	"limit":       "CURR %g",
+	"limit_query": "CURR?",
+	"on":          "OUTP ON",
+	"off":         "OUTP OFF",
+	"on_query":    "OUTP?",
+	"says_off":    "0", // the answer to on_query of an output that is off; no command
+	"read":        "MEAS:VOLT?",
+	// The supply's own, sent once at the start: it has to be content with being spoken
+	// to twice a second. In the off state the keeper is silent, and it may open the gate.
+	"watchdog": "",
 }
 
-// verbs are the templates that take one value.
+// verbs are the templates that take one value, and how it may be written.
 var verbs = map[string]string{"select": "d", "set": "gfe", "limit": "gfe"}
+
+// placeholders are how a bench file writes the value: {v} in V or A, {n} the number of
+// the output.
+var placeholders = strings.NewReplacer("{v}", "%g", "{n}", "%d")
 
 // Names lists the names that [Supply.Commands] may have.
 func Names() []string {
@@ -45,7 +51,7 @@ func Names() []string {
 	return names
 }
 
-var verb = regexp.MustCompile(`%[-+ 0]*[0-9]*(\.[0-9]+)?([a-zA-Z%]|$)`)
+var verb = regexp.MustCompile(`%[-+ 0]{0,4}[0-9]{0,2}(\.[0-9]{1,2})?([a-zA-Z%]|$)`)
 
 func (c commands) own() bool { return c["own language"] != "" }
 
@@ -58,17 +64,18 @@ func commandsOf(s Supply) (commands, error) {
 		if _, ok := standard[name]; !ok {
 			return nil, fmt.Errorf("%w: supply %s: no command is called %q (there are: %s)", ErrConfig, s.Name, name, strings.Join(Names(), ", "))
 		}
-		if err := checkTemplate(name, text); err != nil {
+		if err := checkTemplate(name, placeholders.Replace(text)); err != nil {
 			return nil, fmt.Errorf("%w: supply %s: %v", ErrConfig, s.Name, err)
 		}
+		text = placeholders.Replace(text)
 		c[name] = text
 		if (name == "set" || name == "on" || name == "off") && text != standard[name] {
 			c["own language"] = "yes"
 		}
 	}
 	if c.own() {
-		if c["on?"] != "" && c["says off"] == "" {
-			return nil, fmt.Errorf("%w: supply %s: what it answers to %q when it is off is not given (says off)", ErrConfig, s.Name, c["on?"])
+		if c["on_query"] != "" && c["says_off"] == "" {
+			return nil, fmt.Errorf("%w: supply %s: what it answers to %q when it is off is not given (says_off)", ErrConfig, s.Name, c["on_query"])
 		}
 	} else {
 		for name, text := range standard {
@@ -92,12 +99,14 @@ func checkTemplate(name, text string) error {
 	if strings.ContainsFunc(text, func(r rune) bool { return r < ' ' || r > '~' }) {
 		return fmt.Errorf("command %q: only plain characters of one line", name)
 	}
-	if text == "" || name == "says off" {
+	if text == "" || name == "says_off" {
 		return nil
 	}
 	found := verb.FindAllStringSubmatch(text, -1)
 	want := verbs[name]
 	switch {
+	case strings.Count(text, "%") != len(found):
+		return fmt.Errorf("command %q: a %% that is no value: %q", name, text)
 	case want == "" && len(found) > 0:
 		return fmt.Errorf("command %q takes no value: %q", name, text)
 	case want != "" && name != "select" && len(found) != 1, len(found) > 1:
@@ -132,6 +141,11 @@ func fill(template string, v float64) string {
 	})
 }
 
+// sent is the value that a template really sends for v, which it may round.
+func (c commands) sent(name string, v float64) (float64, error) {
+	return parseNumber(strings.TrimSpace(fill(verb.FindString(c[name]), v)))
+}
+
 var number = regexp.MustCompile(`[-+]?([0-9]+\.?[0-9]*|\.[0-9]+)([eE][-+]?[0-9]+)?`)
 
 // parseNumber reads the first number of a reply such as "+2.99980E+00", "V3.00" or
@@ -148,8 +162,8 @@ func parseNumber(reply string) (float64, error) {
 	return v, nil
 }
 
-// isOff reads the answer to on?.
+// isOff reads the answer to on_query.
 func (c commands) isOff(reply string) bool {
 	reply = strings.TrimSpace(reply)
-	return strings.EqualFold(reply, c["says off"]) || !c.own() && strings.EqualFold(reply, "OFF")
+	return strings.EqualFold(reply, c["says_off"]) || !c.own() && strings.EqualFold(reply, "OFF")
 }

@@ -67,6 +67,7 @@ type supply struct {
 	slow     time.Duration // before each answer
 	unknown  bool          // is no supply that answers *IDN?
 	greatest float64       // V that it can give; 0: 30
+	drops    bool          // drops what stands behind a command that it refuses
 }
 
 type output struct {
@@ -118,7 +119,12 @@ func (s *supply) line(message string) string {
 			continue
 		}
 		s.notes.add(s.name, text)
-		if a := s.command(text); a != "" {
+		faults := len(s.queue)
+		a := s.command(text)
+		if s.drops && len(s.queue) > faults {
+			break
+		}
+		if a != "" {
 			answers = append(answers, a)
 		}
 	}

@@ -32,8 +32,8 @@ type Supply struct {
 	Limit    float64 `json:"limit_a"`  // current limit to be set, A; 0: leave it
 	Voltage  float64 `json:"voltage"`  // V: of the drain supply when it is on; not used for the gate
 	Negative bool    `json:"negative"` // leads are swapped: a gate voltage of -3 V is a setting of 3 V
-	// Commands holds templates that differ from SCPI's, by the names of [Names]. An
-	// empty one is not available. A supply with a template of its own for set, on or
+	// Commands holds templates that differ from SCPI's, by the names of [Names], with
+	// {v} or %g for the value. An empty one is not available. A supply with a template of its own for set, on or
 	// off is taken to speak a language of its own: nothing of SCPI is sent to it.
 	Commands map[string]string `json:"commands"`
 }

@@ -159,7 +159,9 @@ func (w *worker) work() {
 	}
 }
 
-// talk is a conversation over an open connection: one short command at a time.
+// talk is a conversation over an open connection: one short command at a time. It is
+// not that of package scpi, since every wait in it can be broken off, and since nothing
+// may be sent to a supply of another language but its own templates.
 type talk struct {
 	line *line
 	conn port.Conn
@@ -226,7 +228,7 @@ func (t *talk) ask(text string, limit time.Duration) (string, error) {
 		}
 	}
 	if errors.Is(err, errNoReply) {
-		err = fmt.Errorf("%w: %s: no answer to %q in %v", ErrLine, t.line.address, text, limit.Round(time.Millisecond))
+		err = fmt.Errorf("%w: %s: %w to %q in %v", ErrLine, t.line.address, errNoReply, text, limit.Round(time.Millisecond))
 	}
 	if err != nil {
 		t.line.setLeftover(true)
@@ -291,7 +293,7 @@ func (t *talk) clearLeftover(identify string, limit time.Duration) error {
 	for end := time.Now().Add(limit + time.Duration(len(identity)+64)*t.conn.ByteTime()); ; {
 		s, err := t.next(end)
 		if errors.Is(err, errNoReply) {
-			return fmt.Errorf("%w: %s: no answer to %q", ErrLine, t.line.address, identify)
+			return fmt.Errorf("%w: %s: %w to %q", ErrLine, t.line.address, errNoReply, identify)
 		}
 		if err != nil {
 			return err

@@ -4,6 +4,7 @@ import (
 	"context"
 	"encoding/json"
 	"errors"
+	"flag"
 	"fmt"
 	"os"
 	"os/signal"
@@ -29,6 +30,8 @@ func TestMain(m *testing.M) {
 	case "measure":
 		os.Exit(measure())
 	}
+	flag.Parse()
+	flag.Set("test.parallel", "16") // these tests wait far more than they compute
 	os.Exit(m.Run())
 }
 
@@ -116,6 +119,15 @@ func loop(ctx context.Context, k *Keeper, meter port.Conn, w work) (reason strin
 				select {}
 			case "hang":
 				select {}
+			case "busy": // orders one after the other, beside the loop
+				go func() {
+					for i := 0; ; i++ {
+						if _, err := k.Set(w.Gate + float64(i%2)/10); err != nil {
+							return
+						}
+					}
+				}()
+				continue
 			}
 			if v, err := strconv.ParseFloat(line, 64); err != nil || v > w.Most {
 				return "limit: " + line

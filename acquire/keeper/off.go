@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"time"
 )
 
@@ -11,13 +12,14 @@ import (
 // the gate's off voltage can do no harm, a gate left where it is can.
 const (
 	drainFirst  = 150 * time.Millisecond
-	commandTime = 400 * time.Millisecond // of a command that answers; then its connection is given up
+	commandTime = 400 * time.Millisecond // of a command, growing with each try; then its connection is given up
 	proofTime   = 6 * time.Second        // of reading back
 )
 
 // goal is one outlet on its way off.
 type goal struct {
 	o       *outlet
+	written bool // the command of this try went out
 	reached bool
 	v       float64 // voltage read back, NaN: not read
 	last    error   // what kept the last try from its goal
@@ -47,7 +49,7 @@ func (k *keeper) goOff(c cause) OffReport {
 	for try, pause := range k.lim.pauses {
 		time.Sleep(pause)
 		t.command(try)
-		t.prove()
+		t.prove(try)
 		if t.gate.reached && (t.drain == nil || t.drain.reached) {
 			break
 		}
@@ -83,14 +85,10 @@ func (t *trip) drainWords() string {
 }
 
 func (t *trip) fault(o *outlet, err error) {
-	s := err.Error()
-	for _, e := range t.errs {
-		if e == s {
-			return
-		}
+	if s := err.Error(); !slices.Contains(t.errs, s) {
+		t.errs = append(t.errs, s)
+		t.k.log.note("%s: %v", o, err)
 	}
-	t.errs = append(t.errs, s)
-	t.k.log.note("%s: %v", o, err)
 }
 
 // command sends the orders themselves: the drain supply's first, the gate's as soon as
@@ -103,7 +101,7 @@ func (t *trip) command(try int) {
 		drain = d.o.line.begin(nil, func(k *talk) (float64, error) { return d.o.commandOff(k, try) })
 		select {
 		case r := <-drain:
-			t.noted(d.o, r)
+			t.noted(d, r)
 			drainDone = true
 		case <-time.After(drainFirst):
 		}
@@ -111,35 +109,35 @@ func (t *trip) command(try int) {
 	if g := t.gate; !g.reached && g.o.known {
 		gate = g.o.line.begin(nil, func(k *talk) (float64, error) { return g.o.commandGate(k, t.k.cfg.OffVoltage) })
 	}
-	left := func() time.Duration { return max(commandTime-time.Since(start), time.Millisecond) }
+	limit := commandTime * time.Duration(1+2*try) // a new connection takes its time
+	left := func() time.Duration { return max(limit-time.Since(start), time.Millisecond) }
 	if drain != nil && !drainDone && (gate == nil || t.drain.o.line != t.gate.o.line) {
 		// Two lines: neither waits for the other longer than its own limit.
-		defer func() { t.await(t.drain.o, drain, left()) }()
+		defer func() { t.await(t.drain, drain, left()) }()
 	} else if drain != nil && !drainDone {
-		t.await(t.drain.o, drain, left())
-		start = time.Now()
+		t.await(t.drain, drain, left())
 	}
 	if gate != nil {
-		start = time.Now()
-		t.await(t.gate.o, gate, commandTime)
+		t.await(t.gate, gate, limit)
 	}
 }
 
-func (t *trip) await(o *outlet, done <-chan result, limit time.Duration) {
+func (t *trip) await(g *goal, done <-chan result, limit time.Duration) {
 	timer := time.NewTimer(limit)
 	defer timer.Stop()
 	select {
 	case r := <-done:
-		t.noted(o, r)
+		t.noted(g, r)
 	case <-timer.C:
-		o.line.giveUp()
-		t.fault(o, fmt.Errorf("%w: %s: hung for %v; connection given up", ErrLine, o, limit.Round(time.Millisecond)))
+		g.o.line.giveUp()
+		t.noted(g, result{math.NaN(), fmt.Errorf("%w: %s: hung for %v; connection given up", ErrLine, g.o, limit.Round(time.Millisecond))})
 	}
 }
 
-func (t *trip) noted(o *outlet, r result) {
-	if r.err != nil {
-		t.fault(o, r.err)
+func (t *trip) noted(g *goal, r result) {
+	g.written = !errors.Is(r.err, ErrLine) || errors.Is(r.err, errNoReply)
+	if g.last = r.err; r.err != nil {
+		t.fault(g.o, r.err)
 		return
 	}
 	t.taken = time.Now()
@@ -184,17 +182,18 @@ func (o *outlet) commandGate(t *talk, v float64) (float64, error) {
 	return 0, o.press(t, "set", setting)
 }
 
-// prove reads both supplies back.
-func (t *trip) prove() {
+// prove reads both supplies back. Where the command did not even go out there is
+// nothing to prove, and the next try comes the sooner.
+func (t *trip) prove(try int) {
 	var drain, gate <-chan result
 	if d := t.drain; d != nil && !d.reached {
-		if d.o.known {
-			drain = d.o.line.begin(nil, d.proveDrain)
-		} else {
+		if !d.o.known {
 			d.last = fmt.Errorf("%s was never spoken to", d.o)
+		} else if d.written {
+			drain = d.o.line.begin(nil, func(k *talk) (float64, error) { return d.o.proveDrain(k, try) })
 		}
 	}
-	if g := t.gate; !g.reached && g.o.known {
+	if g := t.gate; !g.reached && g.o.known && g.written {
 		gate = g.o.line.begin(nil, func(k *talk) (float64, error) { return g.o.proveGate(k, t.k.cfg.OffVoltage) })
 	}
 	limit := time.After(proofTime)
@@ -231,9 +230,8 @@ type otherwise struct{ text string }
 func (e *otherwise) Error() string { return e.text }
 
 // proveDrain asks whether the output is off, and where that cannot be asked or is
-// denied, whether its voltage has gone.
-func (g *goal) proveDrain(t *talk) (float64, error) {
-	o := g.o
+// denied a second time, whether its voltage has gone.
+func (o *outlet) proveDrain(t *talk, try int) (float64, error) {
 	if err := t.clearLeftover(o.cmd["identify"], o.lim.reply); err != nil {
 		return math.NaN(), err
 	}
@@ -251,6 +249,9 @@ func (g *goal) proveDrain(t *talk) (float64, error) {
 			v = math.NaN()
 		}
 		return v, nil
+	}
+	if can && try == 0 { // the command may have been lost: no waiting
+		return math.NaN(), errors.Join(fmt.Errorf("%w: %s: its output is still on after %q", ErrReadBack, o, o.cmd["off"]), refused)
 	}
 	var v float64
 	for end := time.Now().Add(o.lim.settle / 2); ; time.Sleep(20 * time.Millisecond) {
@@ -283,6 +284,13 @@ func (o *outlet) proveGate(t *talk, v float64) (float64, error) {
 	if refused != nil && !errors.Is(refused, ErrRefused) {
 		return math.NaN(), refused
 	}
+	if o.cmd["set_query"] != "" { // says at once what the voltage may say late
+		setting, _ := o.setting(v)
+		if err := o.compare(t, "set_query", "V", setting, 0.02, 0.01); err != nil {
+			got, _ := o.read(t, o.lim.reply)
+			return got, errors.Join(err, refused)
+		}
+	}
 	got, err := o.settle(t, v, o.lim.settle/2)
 	if err == nil {
 		return got, nil
@@ -290,18 +298,19 @@ func (o *outlet) proveGate(t *talk, v float64) (float64, error) {
 	return got, errors.Join(err, refused)
 }
 
-// mayOpen tells whether the gate's output may be opened. The gate of a depletion part
-// then goes to 0 V, where the part conducts: its drain supply has to be off.
+// mayOpen tells whether the gate's output may be opened. It then goes to 0 V, where a
+// depletion part conducts: a drain supply that can be switched has to be off. Only the
+// gate of another part that could not be brought to its off voltage is opened anyway.
 func (t *trip) mayOpen() bool {
 	if !t.cause.gone && !t.k.cfg.Bleed || !t.gate.o.known {
 		return false
 	}
-	return !t.k.cfg.Depletion || t.drain != nil && t.drain.reached
+	return t.drain == nil || t.drain.reached || !t.k.cfg.Depletion && !t.gate.reached
 }
 
 func (t *trip) open() {
 	o := t.gate.o
-	_, err := o.line.do(proofTime, nil, func(k *talk) (float64, error) {
+	v, err := o.line.do(proofTime, nil, func(k *talk) (float64, error) {
 		if err := o.say(k, "off", o.lim.reply); err != nil {
 			return 0, err
 		}
@@ -312,13 +321,23 @@ func (t *trip) open() {
 		if err == nil && can && !off {
 			err = fmt.Errorf("%w: %s: its output is still on after %q", ErrReadBack, o, o.cmd["off"])
 		}
-		return 0, err
+		if err != nil {
+			return 0, err
+		}
+		v, err := o.read(k, o.lim.reply)
+		if err != nil {
+			v = math.NaN() // it is open nevertheless
+		}
+		return v, nil
 	})
 	if err != nil {
 		t.fault(o, err)
 		return
 	}
 	t.opened, t.taken = true, time.Now()
+	if !t.gate.reached { // else what it had when it was still driven says more
+		t.gate.v = v
+	}
 }
 
 // offAgain is an order to go off in the off state: what was not reached is tried once
@@ -328,5 +347,6 @@ func (k *keeper) offAgain(o order) {
 		return
 	}
 	r := k.goOff(cause{reason: k.off.Reason, at: time.Now(), order: o.ID, gone: o.Gone})
+	r.Errors = append(slices.Clone(k.off.Errors), r.Errors...)
 	k.off = &r
 }

@@ -27,7 +27,7 @@ type limits struct {
 
 var usual = limits{
 	reply: 1500 * time.Millisecond, settle: time.Second, poll: 500 * time.Millisecond,
-	pauses: []time.Duration{0, 100 * time.Millisecond, 500 * time.Millisecond, 2 * time.Second},
+	pauses: []time.Duration{0, 20 * time.Millisecond, 500 * time.Millisecond, 2 * time.Second},
 }
 
 func near(got, want float64) bool {
@@ -148,12 +148,20 @@ func (o *outlet) faults(t *talk, limit time.Duration) error {
 	return nil
 }
 
-// order says a command and proves that it was taken.
+// order says a command and proves that it was taken. Some instruments drop what stands
+// behind a command that they refuse, and with it the question whether it is done: the
+// error queue then says more than the silence.
 func (o *outlet) order(t *talk, name string, v ...float64) error {
-	if err := o.say(t, name, o.lim.reply, v...); err != nil {
-		return err
+	err := o.say(t, name, o.lim.reply, v...)
+	if err == nil {
+		return o.faults(t, o.lim.reply)
 	}
-	return o.faults(t, o.lim.reply)
+	if errors.Is(err, errNoReply) && o.cmd["errors"] != "" && t.clearLeftover(o.cmd["identify"], o.lim.reply) == nil {
+		if refused := o.faults(t, o.lim.reply); errors.Is(refused, ErrRefused) {
+			return refused
+		}
+	}
+	return err
 }
 
 // read is the voltage at the output, with the device's sign.
@@ -187,10 +195,10 @@ func (o *outlet) settle(t *talk, want float64, patience time.Duration) (float64,
 
 // isOff asks whether the output is off; known tells whether it can be asked.
 func (o *outlet) isOff(t *talk, limit time.Duration) (off, known bool, err error) {
-	if o.cmd["on?"] == "" {
+	if o.cmd["on_query"] == "" {
 		return false, false, nil
 	}
-	reply, err := o.query(t, "on?", limit)
+	reply, err := o.query(t, "on_query", limit)
 	return err == nil && o.cmd.isOff(reply), true, err
 }
 
@@ -243,14 +251,14 @@ func (o *outlet) prepare(t *talk, v float64) (float64, error) {
 	if err := o.order(t, "set", setting); err != nil {
 		return 0, err
 	}
-	if err := o.compare(t, "set?", "V", setting, 0.02, 0.01); err != nil { // resolution of plain supplies: 10 mV
+	if err := o.compare(t, "set_query", "V", setting, 0.02, 0.01); err != nil { // resolution of plain supplies: 10 mV
 		return 0, err
 	}
 	if o.Limit > 0 {
 		if err := o.order(t, "limit", o.Limit); err != nil {
 			return 0, err
 		}
-		if err := o.compare(t, "limit?", "A", o.Limit, 0.001, 0.05); err != nil { // resolution of plain supplies: 1 mA
+		if err := o.compare(t, "limit_query", "A", o.Limit, 0.001, 0.05); err != nil { // resolution of plain supplies: 1 mA
 			return 0, err
 		}
 	}

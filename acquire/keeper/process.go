@@ -7,7 +7,6 @@ import (
 	"fmt"
 	"io"
 	"math"
-	"sync"
 	"time"
 
 	"gatesill/acquire/port"
@@ -134,7 +133,7 @@ func converse(stdin io.Reader, out chan answer, open opener, lim limits) (code i
 		}
 		return 2
 	}
-	k.tell(answer{V: &k.read})
+	k.tell(answer{V: finite(k.read)})
 	k.alarm.watch()
 	k.keep(orders)
 	if !k.off.Reached {
@@ -181,7 +180,11 @@ func (k *keeper) start() error {
 	}
 	k.driving = true
 	for _, o := range both {
-		if _, err := k.run(o, o.shut); err != nil {
+		f := o.shut
+		if o == k.gate {
+			f = k.lead
+		}
+		if _, err := k.run(o, f); err != nil {
 			return err
 		}
 	}
@@ -197,6 +200,26 @@ func (k *keeper) start() error {
 	v, err := k.run(k.gate, func(t *talk) (float64, error) { return k.gate.raise(t, k.cfg.OffVoltage) })
 	k.set, k.read = k.cfg.OffVoltage, v
 	return err
+}
+
+// lead shuts the gate's output. One that was left on is led to the off voltage first,
+// as an opened gate keeps its charge. A supply that cannot will say so once more when
+// it is prepared.
+func (k *keeper) lead(t *talk) (float64, error) {
+	setting, err := k.gate.setting(k.cfg.OffVoltage)
+	if err != nil {
+		return 0, fmt.Errorf("%w: %s: %w", ErrConfig, k.gate, err)
+	}
+	off, can, err := k.gate.isOff(t, k.lim.reply)
+	if err != nil {
+		return 0, err
+	}
+	if !off || !can {
+		if err := k.gate.order(t, "set", setting); err != nil && !errors.Is(err, ErrRefused) {
+			return 0, err
+		}
+	}
+	return k.gate.shut(t)
 }
 
 // keep follows orders until bye or the end of the input. It returns in the off state.
@@ -274,6 +297,9 @@ func (k *keeper) obey(o order) {
 	default:
 		err = fmt.Errorf("%w (%s)", ErrOff, k.off.Reason)
 	}
+	if errors.Is(err, errStopped) {
+		err = fmt.Errorf("%w: %w", ErrOff, err)
+	}
 	a.fail(err)
 	a.V, a.Drain, a.Off = finite(k.read), k.drainOn, k.off
 	k.tell(a)
@@ -283,8 +309,12 @@ func (k *keeper) setGate(v float64) error {
 	if !(math.Abs(v) <= k.cfg.MaxVgs) {
 		return fmt.Errorf("%w: %g V, and at most %g V is allowed", ErrTooHigh, v, k.cfg.MaxVgs)
 	}
-	if _, err := k.gate.setting(v); err != nil {
+	setting, err := k.gate.setting(v)
+	if err != nil {
 		return fmt.Errorf("%w: %w", ErrTooHigh, err)
+	}
+	if sent, err := k.gate.cmd.sent("set", setting); err != nil || math.Abs(sent) > k.cfg.MaxVgs+1e-6 {
+		return fmt.Errorf("%w: %g V would be sent as %g V, and at most %g V is allowed", ErrTooHigh, setting, sent, k.cfg.MaxVgs)
 	}
 	before := k.set
 	k.set = v
@@ -341,122 +371,4 @@ func (k *keeper) poll() {
 		_, err = k.run(k.drain, func(t *talk) (float64, error) { return k.drain.read(t, k.lim.reply) })
 	}
 	k.judge(err)
-}
-
-// alarm says once, to every conversation and to the loop, that it is over.
-type alarm struct {
-	raised chan struct{}
-	limit  time.Duration
-
-	mu       sync.Mutex
-	why      *cause
-	beat     *time.Timer // nil: not watched
-	underway int         // orders that are not answered yet: the loop that beats waits for them
-}
-
-type cause struct {
-	reason string
-	at     time.Time
-	order  int  // its number, or unasked
-	gone   bool // no drain current flows any more
-}
-
-func newAlarm(limit time.Duration) *alarm {
-	return &alarm{raised: make(chan struct{}), limit: limit}
-}
-
-func (a *alarm) raise(c cause) {
-	a.mu.Lock()
-	defer a.mu.Unlock()
-	if a.why == nil {
-		a.why = &c
-		close(a.raised)
-	}
-}
-
-func (a *alarm) cause() (cause, bool) {
-	a.mu.Lock()
-	defer a.mu.Unlock()
-	if a.why == nil {
-		return cause{order: unasked, at: time.Now()}, false
-	}
-	return *a.why, true
-}
-
-// watch starts the heartbeat's clock.
-func (a *alarm) watch() {
-	a.mu.Lock()
-	defer a.mu.Unlock()
-	a.beat = time.AfterFunc(a.limit, func() {
-		a.raise(cause{reason: fmt.Sprintf("no heartbeat for %v", a.limit), at: time.Now(), order: unasked})
-	})
-}
-
-func (a *alarm) unwatch() {
-	a.mu.Lock()
-	defer a.mu.Unlock()
-	if a.beat != nil {
-		a.beat.Stop()
-		a.beat = nil
-	}
-}
-
-// heard sets the clock anew. It stands still while an order is under way; orders is
-// +1 when one came in, -1 when it was answered.
-func (a *alarm) heard(orders int) {
-	a.mu.Lock()
-	defer a.mu.Unlock()
-	a.underway += orders
-	if a.beat == nil {
-		return
-	}
-	a.beat.Stop()
-	if a.underway == 0 {
-		a.beat.Reset(a.limit)
-	}
-}
-
-// listen takes orders in. It never waits for the loop, so that the end of the input
-// is seen at once whatever the loop does.
-func (a *alarm) listen(in *bufio.Scanner, orders chan<- order) {
-	defer close(orders)
-	defer func() {
-		if p := recover(); p != nil {
-			a.raise(cause{reason: fmt.Sprintf("fault of the keeper: %v", p), at: time.Now(), order: unasked})
-		}
-	}()
-	bad := func(reason string) {
-		a.raise(cause{reason: reason, at: time.Now(), order: unasked})
-	}
-	for in.Scan() {
-		o, err := parseOrder(in.Bytes())
-		if err != nil {
-			bad(err.Error())
-			continue
-		}
-		if o.Do == doBeat {
-			a.heard(0)
-			continue
-		}
-		at := time.Now()
-		if o.Do != doStatus {
-			a.heard(+1)
-		}
-		if o.Do == doOff || o.Do == doBye {
-			if o.Reason == "" {
-				o.Reason = "end of work"
-			}
-			a.raise(cause{reason: o.Reason, at: at, order: o.ID, gone: o.Gone})
-		}
-		select {
-		case orders <- o:
-		default:
-			bad("more orders than can be followed")
-		}
-	}
-	if err := in.Err(); err != nil {
-		bad("orders end: " + err.Error())
-		return
-	}
-	bad("measuring program ended")
 }

@@ -21,10 +21,17 @@ const (
 // A call of h that is under way when ctx ends may finish its conversation, for two
 // seconds; then the line is closed under it.
 func Keep(ctx context.Context, address string, s Settings, h Handler, o Options) error {
-	return keep(ctx, open, address, s, h, o)
+	return keeper{open: open, sleep: sleep, grace: grace}.keep(ctx, address, s, h, o)
 }
 
-func keep(ctx context.Context, open opener, address string, s Settings, h Handler, o Options) error {
+// keeper is what tests of [Keep] replace.
+type keeper struct {
+	open  opener
+	sleep func(ctx context.Context, d time.Duration) bool // false when ctx ended
+	grace time.Duration
+}
+
+func (k keeper) keep(ctx context.Context, address string, s Settings, h Handler, o Options) error {
 	if o.ReadTimeout <= 0 {
 		o.ReadTimeout = defaultReadTimeout
 	}
@@ -36,10 +43,10 @@ func keep(ctx context.Context, open opener, address string, s Settings, h Handle
 	}
 	delay := o.FirstRetry
 	for ctx.Err() == nil {
-		c, err := open(ctx, address, s, o.ReadTimeout)
+		c, err := k.open(ctx, address, s, o.ReadTimeout)
 		if err == nil {
 			var talked bool
-			talked, err = serve(ctx, c, h, o)
+			talked, err = k.serve(ctx, c, h, o)
 			c.Close() // what it says is of no use: the line is given up anyway
 			if talked {
 				delay = o.FirstRetry
@@ -52,7 +59,7 @@ func keep(ctx context.Context, open opener, address string, s Settings, h Handle
 		if kind, _ := kindOf(address); kind == kindLog || errors.Is(err, ErrEnd) || errors.Is(err, ErrSettings) {
 			return err
 		}
-		if !sleep(ctx, delay) {
+		if !k.sleep(ctx, delay) {
 			break
 		}
 		delay = min(2*delay, o.LastRetry)
@@ -62,20 +69,20 @@ func keep(ctx context.Context, open opener, address string, s Settings, h Handle
 
 // serve runs an open line until it fails or ctx ends. It tells whether the handler
 // was content with the opening.
-func serve(ctx context.Context, c Conn, h Handler, o Options) (talked bool, err error) {
+func (k keeper) serve(ctx context.Context, c Conn, h Handler, o Options) (talked bool, err error) {
 	done := make(chan struct{})
 	defer close(done)
 	stop := context.AfterFunc(ctx, func() {
 		select {
 		case <-done:
-		case <-time.After(grace):
+		case <-time.After(k.grace):
 			c.Close()
 		}
 	})
 	defer stop()
 
 	if kind, _ := kindOf(c.Address()); kind != kindLog { // whose first bytes are due at once
-		if !sleep(ctx, settleTime(c, o)) {
+		if !k.sleep(ctx, settleTime(c, o)) {
 			return false, ctx.Err()
 		}
 		if err := c.Discard(); err != nil {

@@ -3,12 +3,21 @@ package port
 import (
 	"context"
 	"errors"
+	"flag"
 	"fmt"
+	"os"
 	"strings"
 	"sync"
 	"testing"
 	"time"
 )
+
+// Most of these tests wait for lines, which does not need a processor each.
+func TestMain(m *testing.M) {
+	flag.Parse()
+	flag.Set("test.parallel", "16")
+	os.Exit(m.Run())
+}
 
 // notes is a handler that writes down what it is told.
 type notes struct {
@@ -18,7 +27,6 @@ type notes struct {
 	bytes  func(Conn, []byte) error
 	idle   func(Conn) error
 	lost   func(error)
-	lostAt []time.Time
 }
 
 func (h *notes) note(format string, args ...any) {
@@ -58,7 +66,6 @@ func (h *notes) Idle(c Conn, at time.Time) error {
 
 func (h *notes) Lost(err error, at time.Time) {
 	h.note("lost")
-	h.lostAt = append(h.lostAt, at)
 	if h.lost != nil {
 		h.lost(err)
 	}
@@ -106,7 +113,14 @@ func TestKeepBacksOff(t *testing.T) {
 		return f, nil
 	}
 	h := &notes{}
-	err := keep(context.Background(), open, "x", Settings{}, h, Options{FirstRetry: 10 * time.Millisecond, LastRetry: 40 * time.Millisecond})
+	var delays []time.Duration
+	wait := func(_ context.Context, d time.Duration) bool {
+		if d != 7*time.Second { // which is for settling
+			delays = append(delays, d)
+		}
+		return true
+	}
+	err := keeper{open, wait, grace}.keep(context.Background(), "x", Settings{}, h, Options{Settle: 7 * time.Second})
 	if !errors.Is(err, ErrEnd) {
 		t.Fatal(err)
 	}
@@ -114,10 +128,8 @@ func TestKeepBacksOff(t *testing.T) {
 		t.Errorf("got %s", got)
 	}
 	// Delays before tries 2 to 7; after try 5, which opened, they begin anew.
-	for i, least := range []int{10, 20, 40, 40, 10, 20} {
-		if d := h.lostAt[i+1].Sub(h.lostAt[i]); d < time.Duration(least)*time.Millisecond {
-			t.Errorf("delay %d was %v, at least %d ms", i, d, least)
-		}
+	if got := fmt.Sprint(delays); got != "[200ms 400ms 800ms 1.6s 200ms 400ms]" {
+		t.Errorf("waited %s", got)
 	}
 	for _, f := range all {
 		if !f.closed.Load() {
@@ -126,6 +138,19 @@ func TestKeepBacksOff(t *testing.T) {
 		if f.discarded == 0 {
 			t.Error("what came before the opening was not dropped")
 		}
+	}
+}
+
+func TestKeepsDelayStopsGrowing(t *testing.T) {
+	open := func(context.Context, string, Settings, time.Duration) (Conn, error) { return nil, ErrAbsent }
+	var delays []time.Duration
+	wait := func(_ context.Context, d time.Duration) bool {
+		delays = append(delays, d)
+		return len(delays) < 7
+	}
+	keeper{open, wait, grace}.keep(context.Background(), "x", Settings{}, &notes{}, Options{})
+	if got := fmt.Sprint(delays); got != "[200ms 400ms 800ms 1.6s 3s 3s 3s]" {
+		t.Errorf("waited %s", got)
 	}
 }
 
@@ -154,7 +179,7 @@ func TestKeepTriesAgainAfterTheHandlersErrors(t *testing.T) {
 		}
 		return turn(2, fail)
 	}
-	err := keep(context.Background(), open, "x", Settings{}, h, Options{FirstRetry: time.Millisecond})
+	err := keeper{open, sleep, grace}.keep(context.Background(), "x", Settings{}, h, Options{FirstRetry: time.Millisecond})
 	if !errors.Is(err, ErrEnd) {
 		t.Fatal(err)
 	}
@@ -180,7 +205,7 @@ func TestKeepEndsWithItsContext(t *testing.T) {
 				return &fake{line: line{address: address}}, nil
 			}
 			h := &notes{}
-			if err := keep(ctx, open, "x", Settings{}, h, o); !errors.Is(err, context.Canceled) {
+			if err := (keeper{open, sleep, grace}).keep(ctx, "x", Settings{}, h, o); !errors.Is(err, context.Canceled) {
 				t.Errorf("got %v", err)
 			}
 			if got, want := h.said(), map[string]string{"reading": "opened", "waiting": "lost", "settling": ""}[x]; got != want {
@@ -209,7 +234,7 @@ func TestKeepLetsAConversationFinish(t *testing.T) {
 		}
 		return hung
 	}}
-	if err := keep(ctx, open, "x", Settings{}, h, Options{}); !errors.Is(err, context.Canceled) {
+	if err := (keeper{open, sleep, 500 * time.Millisecond}).keep(ctx, "x", Settings{}, h, Options{}); !errors.Is(err, context.Canceled) {
 		t.Errorf("got %v", err)
 	}
 	if finished != nil || !errors.Is(hung, ErrClosed) {

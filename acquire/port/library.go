@@ -5,6 +5,8 @@ import (
 	"fmt"
 	"os"
 	"sync"
+	"sync/atomic"
+	"syscall"
 	"time"
 
 	"go.bug.st/serial"
@@ -96,27 +98,31 @@ func (l *libraryLine) Write(p []byte) (int, error) {
 		err error
 	}
 	done := make(chan outcome, 1)
+	var given atomic.Bool            // the caller has its answer: no more of p is sent
 	own := append([]byte(nil), p...) // the caller has p back before a stuck write ends
 	go func() {
 		defer func() { l.writing <- struct{}{} }()
-		if err := l.state(); err != nil {
-			done <- outcome{0, err}
-			return
+		// A signal, of which the Go runtime has its own, cuts a blocking write short.
+		var o outcome
+		for o.n < len(own) && o.err == nil {
+			if given.Load() || l.closed.Load() {
+				return
+			}
+			var n int
+			n, o.err = l.p.Write(own[o.n:])
+			if o.n += n; errors.Is(o.err, syscall.EINTR) {
+				o.err = nil
+			}
 		}
-		n, err := l.p.Write(own)
-		done <- outcome{n, err}
+		done <- o
 	}()
+	defer given.Store(true)
 	select {
 	case o := <-done:
-		switch {
-		case o.err == nil && o.n == len(p):
-			return o.n, nil
-		case errors.Is(o.err, ErrClosed):
-			return o.n, o.err
-		case o.err == nil:
-			o.err = fmt.Errorf("%d of %d bytes taken", o.n, len(p))
+		if o.err != nil {
+			return o.n, l.failed(o.err)
 		}
-		return o.n, l.failed(o.err)
+		return o.n, nil
 	case <-l.gone:
 		return 0, l.failed(os.ErrClosed)
 	case <-timer.C:

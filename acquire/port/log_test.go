@@ -136,7 +136,7 @@ func TestRecorderThereAndBack(t *testing.T) {
 		var want []chunk
 		var last time.Duration
 		for i := range rapid.IntRange(0, 20).Draw(t, "chunks") {
-			at := time.Duration(rapid.IntRange(-1000, 5e9).Draw(t, "at")) * time.Microsecond
+			at := time.Duration(rapid.Int64Range(-1000, 5e9).Draw(t, "at")) * time.Microsecond
 			data := rapid.SliceOfN(rapid.Byte(), 0, 20).Draw(t, "bytes")
 			if err := r.Bytes(data, zero.Add(at)); err != nil {
 				t.Fatal(err)

@@ -38,7 +38,6 @@ func TestKeepFollowsTheName(t *testing.T) {
 		if got += string(b); strings.HasSuffix(got, "one") {
 			os.Remove(name)
 			first.Close()
-			time.AfterFunc(100*time.Millisecond, func() { os.Symlink(other, name) })
 		}
 		if strings.HasSuffix(got, "two") {
 			cancel()
@@ -46,7 +45,11 @@ func TestKeepFollowsTheName(t *testing.T) {
 		return nil
 	}
 	var whys []error
-	h.lost = func(err error) { whys = append(whys, err) }
+	h.lost = func(err error) {
+		if whys = append(whys, err); errors.Is(err, ErrAbsent) {
+			os.Symlink(other, name)
+		}
+	}
 	err := Keep(ctx, name, Settings{}, h, Options{FirstRetry: 20 * time.Millisecond, LastRetry: 40 * time.Millisecond, Settle: 10 * time.Millisecond})
 	if !errors.Is(err, context.Canceled) || got != "onetwo" {
 		t.Errorf("%v: got %q", err, got)

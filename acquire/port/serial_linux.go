@@ -36,7 +36,7 @@ func openSerial(address string, s Settings, readTimeout time.Duration) (Conn, er
 	}
 	t := &tty{line: line{address: address, readTimeout: readTimeout, byteTime: s.ByteTime()}, f: f}
 	if err := t.setUp(device, m, s); err != nil {
-		f.Close()
+		closeDevice(f)
 		return nil, err
 	}
 	return t, nil
@@ -67,6 +67,13 @@ func openDevice(address, device string) (*os.File, error) {
 		return nil, busy(address, device)
 	}
 	return f, nil // a device that knows no locks is used without
+}
+
+// closeDevice gives the lock back before closing: a process that is just being started
+// may hold a copy of the descriptor, and the lock with it, for a moment longer.
+func closeDevice(f *os.File) error {
+	control(f, func(fd int) { unix.Flock(fd, unix.LOCK_UN) })
+	return f.Close()
 }
 
 func busy(address, device string) error {
@@ -178,7 +185,7 @@ func (t *tty) Close() error {
 	if t.wasStuck.Load() { // or the kernel would wait up to 30 s for the bytes to go out
 		control(t.f, func(fd int) { unix.IoctlSetInt(fd, unix.TCFLSH, unix.TCOFLUSH) })
 	}
-	if err := t.f.Close(); err != nil {
+	if err := closeDevice(t.f); err != nil {
 		return fmt.Errorf("%s: %w", t.address, err)
 	}
 	return nil

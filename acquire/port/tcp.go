@@ -95,16 +95,14 @@ func (s *socket) Discard() error {
 	if err := s.state(); err != nil {
 		return err
 	}
-	// A deadline that is over would keep even bytes that wait from being read.
-	if err := s.c.SetReadDeadline(time.Now().Add(2 * time.Millisecond)); err != nil {
-		return s.failed(err)
-	}
 	buf := make([]byte, 4096)
 	for range 256 {
-		if _, err := s.c.Read(buf); errors.Is(err, os.ErrDeadlineExceeded) {
-			return nil
-		} else if err != nil {
+		n, err := arrived(s.c, buf)
+		if err != nil {
 			return s.failed(err)
+		}
+		if n == 0 {
+			break
 		}
 	}
 	return nil

@@ -152,7 +152,7 @@ func TestCloseWhileReading(t *testing.T) {
 			t.Parallel()
 			rounds, readTimeout := 1000, 10*time.Second
 			if w.name == "library" { // whose Close waits for the time-out
-				rounds, readTimeout = 300, 4*time.Millisecond
+				rounds, readTimeout = 150, 4*time.Millisecond
 			}
 			far, device := pty(t)
 			_ = far
@@ -342,6 +342,28 @@ func TestSecondOpenIsBusy(t *testing.T) {
 	c.Close()
 	if c, err = Open(link, Settings{}); err != nil {
 		t.Fatalf("after Close: %v", err)
+	}
+	c.Close()
+}
+
+// A copy of the descriptor, as a process that is just being started holds it, keeps
+// the line from nobody.
+func TestCloseGivesTheLockBack(t *testing.T) {
+	t.Parallel()
+	_, device := pty(t)
+	c, err := Open(device, Settings{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	var copied int
+	control(c.(*tty).f, func(fd int) { copied, err = unix.Dup(fd) })
+	if err != nil {
+		t.Fatal(err)
+	}
+	defer unix.Close(copied)
+	c.Close()
+	if c, err = Open(device, Settings{}); err != nil {
+		t.Fatal(err)
 	}
 	c.Close()
 }

@@ -28,6 +28,8 @@ func (d tmcDevice) setTimeout(after time.Duration) error {
 	return errors.Join(err, set)
 }
 
+func (d tmcDevice) Close() error { return closeDevice(d.File) }
+
 func isTMCTimeout(err error) bool { return errors.Is(err, unix.ETIMEDOUT) }
 
 func openTMC(address, path string, readTimeout time.Duration) (Conn, error) {
@@ -41,7 +43,7 @@ func openTMC(address, path string, readTimeout time.Duration) (Conn, error) {
 	}
 	t, err := newTMC(address, tmcDevice{f}, readTimeout)
 	if err != nil {
-		f.Close()
+		closeDevice(f)
 		return nil, fmt.Errorf("%w (or it is no USBTMC device)", err)
 	}
 	return t, nil

@@ -124,6 +124,9 @@ func (e *endpoint) send(b []byte) {
 		return
 	}
 	n, open := e.tty.send(b)
+	if e.status.Open && !open {
+		e.tty.forget()
+	}
 	e.status.Open = open
 	e.status.Bytes += n
 	if n < len(b) {

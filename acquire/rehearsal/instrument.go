@@ -57,9 +57,6 @@ func (i *instrument) integration() float64 {
 	return s
 }
 
-// free tells whether it converts without being told.
-func (i *instrument) free() bool { return i.supply == nil && i.console == nil }
-
 // next is the next instant after now at which something begins or ends.
 func (i *instrument) next(now float64) float64 {
 	t := math.Inf(1)

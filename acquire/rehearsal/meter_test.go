@@ -65,8 +65,7 @@ var chips = []struct {
 	{"text", 10000, []float64{1, 10, 100}, ""},
 }
 
-// Every format's readings are the truth within a count (and a half for a value that
-// moves from one conversion to the next is not needed: it stands still).
+// Every format's readings are the truth within half a count.
 func TestFormatsShowTheTruth(t *testing.T) {
 	for _, c := range chips {
 		b := one(t, Meter{Role: "gate", Speaks: c.speaks, Counts: c.counts, Tops: c.tops, Auto: true, Cycle: 0.3, Integration: 0.1, Processing: 0.05}, nil)

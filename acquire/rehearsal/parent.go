@@ -54,6 +54,9 @@ func (t *tail) text() string {
 // configuration. env is added to the environment. The process ends with ctx, with
 // Close, or with this process, whose end it hears by its stdin.
 func Start(ctx context.Context, exe string, args, env []string, c Config) (*Rehearsal, error) {
+	if err := terminals(); err != nil {
+		return nil, err
+	}
 	if err := c.check(); err != nil {
 		return nil, err
 	}

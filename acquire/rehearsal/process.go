@@ -53,6 +53,7 @@ type process struct {
 	start  time.Time
 	folder string
 	own    bool // the folder was made here
+	closed bool // the lines are gone for good
 	ends   map[string]*endpoint
 	back   map[string]float64 // when an unplugged line comes back, s
 	wake   chan struct{}
@@ -188,6 +189,9 @@ func (p *process) rouse() {
 // step brings the simulation to the present and sends what is due; it gives when it
 // wants to be called next, s.
 func (p *process) step() float64 {
+	if p.closed {
+		return math.Inf(1)
+	}
 	now := p.now()
 	for _, s := range p.bench.Step(now) {
 		p.ends[s.Line].take(s)
@@ -314,6 +318,7 @@ func (p *process) ready() (Ready, error) {
 // close takes the lines away and waits until nothing listens on them any more.
 func (p *process) close() {
 	p.mu.Lock()
+	p.closed = true
 	p.remove()
 	p.mu.Unlock()
 	p.trying.Wait()

@@ -15,6 +15,7 @@ import (
 	"time"
 
 	"gatesill/acquire/meter"
+	"gatesill/acquire/port"
 )
 
 const asProcess = "GATESILL_TEST_REHEARSAL"
@@ -156,6 +157,7 @@ func quick(t testing.TB) Config {
 // One sweep by hand of a program that is not there: supplies are set, meters read,
 // and what they say is the truth.
 func TestProcess(t *testing.T) {
+	t.Parallel()
 	r := start(t, quick(t))
 	if !strings.Contains(r.Bench(), r.Lines()["gate"]) || !strings.Contains(r.Bench(), r.Supplies()["drain"]) {
 		t.Errorf("bench file without its lines:\n%s", r.Bench())
@@ -220,9 +222,45 @@ func TestProcess(t *testing.T) {
 	}
 }
 
+// What opens real lines opens these.
+func TestOpenedAsSerialLine(t *testing.T) {
+	t.Parallel()
+	r := start(t, quick(t))
+	for _, path := range []string{r.Lines()["current"], r.Supplies()["gate"]} {
+		settings, err := port.ParseSettings("115200 8N1")
+		if err != nil {
+			t.Fatal(err)
+		}
+		c, err := port.Open(path, settings)
+		if err != nil {
+			t.Fatal(err)
+		}
+		if _, err := c.Write([]byte("*IDN?\n")); err != nil {
+			t.Fatal(err)
+		}
+		var got []byte
+		eventually(t, "answer", func() bool {
+			b := make([]byte, 100)
+			n, err := c.Read(b)
+			if err != nil {
+				t.Fatal(err)
+			}
+			got = append(got, b[:n]...)
+			return bytes.HasSuffix(got, []byte(",0,1\n")) || bytes.HasSuffix(got, []byte(",0,1\r\n"))
+		})
+		if !bytes.HasPrefix(got, []byte("REHEARSAL,simulated ")) {
+			t.Errorf("%q", got)
+		}
+		if err := c.Close(); err != nil {
+			t.Error(err)
+		}
+	}
+}
+
 // An adapter that is pulled hangs up whoever reads it, and comes back at the same
 // name on another terminal.
 func TestUnplugged(t *testing.T) {
+	t.Parallel()
 	r := start(t, quick(t))
 	path := r.Lines()["gate"]
 	before, err := os.Readlink(path)
@@ -266,13 +304,14 @@ func TestUnplugged(t *testing.T) {
 
 // Every other fault as it looks on the line.
 func TestFaultsOnTheLine(t *testing.T) {
+	t.Parallel()
 	c := quick(t)
 	c.Meters[0].Cycle, c.Meters[0].Integration = 0.01, 0.01
 	r := start(t, c)
 	gate, load := open(t, r.Lines()["gate"]), open(t, r.Lines()["load"])
 	supply := open(t, r.Supplies()["gate"])
 	supply.ask("VOLT 3;OUTP ON;*OPC?\n")
-	const look = 200 * time.Millisecond
+	const look = 60 * time.Millisecond
 	fault := func(f Fault) {
 		t.Helper()
 		if f.Role == "" {
@@ -319,7 +358,7 @@ func TestFaultsOnTheLine(t *testing.T) {
 	eventually(t, "garbage", func() bool { _, bad := gate.readings("text", look); return bad > 2 })
 	fault(Fault{Kind: Clear})
 	fault(Fault{Kind: Slow, Value: 0.1})
-	eventually(t, "slow", func() bool { rs, _ := gate.readings("text", 2*look); return len(rs) > 0 && len(rs) <= 5 })
+	eventually(t, "slow", func() bool { rs, _ := gate.readings("text", 6*look); return len(rs) > 0 && len(rs) <= 6 })
 	fault(Fault{Kind: Clear})
 	fault(Fault{Kind: Refused, Role: "supply-gate", Match: "OUTP OFF"})
 	if got := supply.ask("OUTP OFF;OUTP?;SYST:ERR?\n"); got != "1;"+notNow {
@@ -333,6 +372,7 @@ func TestFaultsOnTheLine(t *testing.T) {
 // Bytes of a handheld come at its baud rate: 14 bytes of 10 bits at 2400 take 58 ms,
 // the first as long before the last as 13 of them take.
 func TestPacedBytes(t *testing.T) {
+	t.Parallel()
 	c, err := Standard(Handheld)
 	if err != nil {
 		t.Fatal(err)
@@ -364,6 +404,7 @@ func TestPacedBytes(t *testing.T) {
 
 // The end of the parent is the end of the process, whatever was under way.
 func TestEndsWithStdin(t *testing.T) {
+	t.Parallel()
 	c := quick(t)
 	c.Folder = t.TempDir()
 	r := start(t, c)
@@ -384,6 +425,7 @@ func TestEndsWithStdin(t *testing.T) {
 }
 
 func TestEndsWithContext(t *testing.T) {
+	t.Parallel()
 	ctx, cancel := context.WithCancel(context.Background())
 	c := quick(t)
 	c.Folder = t.TempDir()

@@ -10,6 +10,9 @@ import (
 	"golang.org/x/sys/unix"
 )
 
+// terminals says why there can be none.
+func terminals() error { return nil }
+
 // openTerminal makes a new pseudo-terminal.
 func openTerminal() (*terminal, error) {
 	fd, err := unix.Open("/dev/ptmx", unix.O_RDWR|unix.O_NOCTTY|unix.O_CLOEXEC|unix.O_NONBLOCK, 0)
@@ -62,6 +65,22 @@ func (t *terminal) send(b []byte) (n int, open bool) {
 		}
 	})
 	return n, open
+}
+
+// forget drops what was sent and not read, when nobody has the line open any more: a
+// pseudo-terminal would keep it for whoever comes next, which no serial line does.
+func (t *terminal) forget() {
+	fd, err := unix.Open(t.path, unix.O_RDWR|unix.O_NOCTTY|unix.O_CLOEXEC|unix.O_NONBLOCK, 0)
+	if err != nil {
+		return
+	}
+	defer unix.Close(fd)
+	b := make([]byte, 4096)
+	for range 100 { // a bound, in case somebody has come meanwhile
+		if n, err := unix.Read(fd, b); err != nil || n == 0 {
+			return
+		}
+	}
 }
 
 // open tells whether anybody has the line open.

@@ -74,7 +74,7 @@ func TestSilentDo(t *testing.T) {
 		i := plainInstrument()
 		i.before = func(_ int, message string) (string, bool) { return "", strings.HasPrefix(message, "STEP") }
 		return i
-	}, Options{Timeout: 100 * time.Millisecond}, func(t *testing.T, i *instrument, talk *Talk) {
+	}, Options{Timeout: 300 * time.Millisecond}, func(t *testing.T, i *instrument, talk *Talk) {
 		if err := talk.Do("STEP UP"); !errors.Is(err, ErrSilent) {
 			t.Fatalf("got %v", err)
 		}
@@ -104,7 +104,7 @@ func TestDoneButQueueSilent(t *testing.T) {
 			return "", done && message == "SYST:ERR?"
 		}
 		return i
-	}, Options{Timeout: 100 * time.Millisecond}, func(t *testing.T, i *instrument, talk *Talk) {
+	}, Options{Timeout: 300 * time.Millisecond}, func(t *testing.T, i *instrument, talk *Talk) {
 		if err := talk.Do("VOLT 99"); !errors.Is(err, ErrSilent) {
 			t.Errorf("got %v", err)
 		}
@@ -177,7 +177,7 @@ func TestErrorsGivesTheQueueAfterSilence(t *testing.T) {
 		i.mu.Lock()
 		i.fail(`-420,"Query unterminated"`)
 		i.mu.Unlock()
-		talk.o.Timeout = 100 * time.Millisecond
+		talk.o.Timeout = 300 * time.Millisecond
 		entries, err := talk.Errors()
 		if err != nil || len(entries) != 1 || entries[0].Code != -420 {
 			t.Errorf("%v, %v", entries, err)

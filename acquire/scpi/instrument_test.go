@@ -1,9 +1,11 @@
 package scpi
 
 import (
+	"flag"
 	"fmt"
 	"io"
 	"net"
+	"os"
 	"slices"
 	"strings"
 	"sync"
@@ -12,6 +14,13 @@ import (
 
 	"gatesill/acquire/port"
 )
+
+// Most of these tests wait for replies, which does not need a processor each.
+func TestMain(m *testing.M) {
+	flag.Parse()
+	flag.Set("test.parallel", "16")
+	os.Exit(m.Run())
+}
 
 // instrument is an instrument that is not there. It takes messages one after the
 // other, as instruments do, with the manners that a test gives it.

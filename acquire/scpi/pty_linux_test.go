@@ -41,3 +41,14 @@ func overPTY(t testing.TB, i *instrument) port.Conn {
 	t.Cleanup(func() { c.Close(); far.Close(); <-done })
 	return c
 }
+
+// BenchmarkQuery measures a query and its reply over a pseudo-terminal, which has no
+// bytes' time of its own.
+func BenchmarkQuery(b *testing.B) {
+	talk := New(overPTY(b, plainInstrument()), Options{})
+	for b.Loop() {
+		if _, err := talk.Query("READ?", 0); err != nil {
+			b.Fatal(err)
+		}
+	}
+}

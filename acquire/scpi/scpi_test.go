@@ -93,6 +93,63 @@ func TestVeryLateReplyIsNotTakenForAnother(t *testing.T) {
 	})
 }
 
+// What comes in unasked is no reply.
+func TestUnaskedLineIsNotTakenForAReply(t *testing.T) {
+	every(t, func() *instrument {
+		i := plainInstrument()
+		i.before = func(_ int, message string) (string, bool) { return "+7\n+8\n", message == "INIT" }
+		return i
+	}, Options{}, func(t *testing.T, i *instrument, talk *Talk) {
+		talk.Send("INIT")
+		time.Sleep(200 * time.Millisecond)
+		if got, err := talk.Query("READ?", 0); err != nil || got != "+1.50000000E+00" {
+			t.Errorf("got %q, %v", got, err)
+		}
+	})
+}
+
+// inPieces is a line on which a reply comes in pieces, one a Read; "" is a time-out.
+type inPieces struct {
+	port.Conn
+	pieces []string
+	t      *testing.T
+	sent   int
+}
+
+func (c *inPieces) Read(p []byte) (int, error) {
+	if len(c.pieces) == 0 {
+		return 0, nil
+	}
+	n := copy(p, c.pieces[0])
+	c.pieces = c.pieces[1:]
+	return n, nil
+}
+
+func (c *inPieces) Write(p []byte) (int, error) {
+	if c.sent++; c.sent > 1 && len(c.pieces) > 0 && c.pieces[0] == "\n" {
+		c.t.Error("a message was sent into a reply")
+	}
+	return len(p), nil
+}
+func (c *inPieces) Discard() error          { return nil }
+func (c *inPieces) ByteTime() time.Duration { return 0 }
+func (c *inPieces) Address() string         { return "line" }
+
+// An LF behind a CR is waited for before the next message, until it is known that
+// none is sent.
+func TestNothingIsSentIntoAReply(t *testing.T) {
+	c := &inPieces{t: t, pieces: []string{"+1\r", "\n", "+2\r", "\n", "+3\r\n", "+4\r", "", "+5\r", "+6\r"}}
+	talk := New(c, Options{})
+	for n := 1; n <= 6; n++ {
+		if got, err := talk.Query("READ?", 0); err != nil || got != fmt.Sprintf("+%d", n) {
+			t.Fatalf("got %q, %v, want %d", got, err, n)
+		}
+	}
+	if len(c.pieces) != 0 {
+		t.Errorf("left: %q", c.pieces)
+	}
+}
+
 func TestGarbledReplyIsAskedForAgain(t *testing.T) {
 	every(t, func() *instrument {
 		i := plainInstrument()
@@ -225,10 +282,10 @@ func TestPlain(t *testing.T) {
 		if err := talk.Do("V1 12.00"); err != nil {
 			t.Fatal(err)
 		}
-		if got, err := talk.Query("I1?", 100*time.Millisecond); err != nil || got != "0.125A" {
+		if got, err := talk.Query("I1?", 400*time.Millisecond); err != nil || got != "0.125A" {
 			t.Errorf("got %q, %v", got, err)
 		}
-		if got, err := talk.Query("V1?", 100*time.Millisecond); err != nil || got != "12.00V" {
+		if got, err := talk.Query("V1?", 400*time.Millisecond); err != nil || got != "12.00V" {
 			t.Errorf("got %q, %v", got, err)
 		}
 		if e, err := talk.Errors(); e != nil || err != nil {

@@ -15,12 +15,11 @@ import (
 const KeeperVerb = "keeper-process"
 
 // driver hands orders to the keeper of the supplies one after the other, away from
-// the measuring loop, which must go on hearing the meters. The way off overtakes
-// what waits.
+// the measuring loop, which must go on hearing the meters. The way off waits for
+// none of them: it interrupts the one under way.
 type driver struct {
 	k      *keeper.Keeper
 	orders chan func()
-	urgent chan func()
 	quit   chan struct{}
 	// Told gets what came of the orders; the loop reads it.
 	told chan driven
@@ -73,7 +72,7 @@ func newDriver(ctx context.Context, c keeper.Config) (*driver, error) {
 	if err != nil {
 		return nil, &Failure{Code: ExitInstrument, Err: fmt.Errorf("supplies: %w", err), Hint: "look at the [[supply]] tables of the bench file, and at the supplies themselves"}
 	}
-	d := &driver{k: k, orders: make(chan func(), 64), urgent: make(chan func(), 8), quit: make(chan struct{}), told: make(chan driven, 64)}
+	d := &driver{k: k, orders: make(chan func(), 64), quit: make(chan struct{}), told: make(chan driven, 64)}
 	go d.run()
 	return d, nil
 }
@@ -81,14 +80,6 @@ func newDriver(ctx context.Context, c keeper.Config) (*driver, error) {
 func (d *driver) run() {
 	for {
 		select {
-		case f := <-d.urgent:
-			f()
-			continue
-		default:
-		}
-		select {
-		case f := <-d.urgent:
-			f()
 		case f := <-d.orders:
 			f()
 		case <-d.quit:
@@ -112,10 +103,10 @@ func (d *driver) drain(on bool) {
 
 // off asks for the off state.
 func (d *driver) off(reason string, gone bool) {
-	d.urgent <- func() {
+	go func() {
 		r, err := d.k.Off(reason, gone)
 		d.told <- driven{what: "off", off: r, err: err}
-	}
+	}()
 }
 
 // close ends the keeper, which goes to the off state first.

@@ -122,9 +122,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error) {
 	rq := &w.rq
 	if !rq.Rehearsal {
-		b, err := bench.ReadFile(rq.Bench)
+		b, err := readBench(rq.Bench)
 		if err != nil {
-			return nil, failed("gatesill help bench-file shows every key; gatesill meters --write FILE makes one", "%w", err)
+			return nil, err
 		}
 		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
 			env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
@@ -216,10 +216,10 @@ func (w *sweeper) prepare() error {
 // plan is the plan of a sweep with what is known now.
 func (w *sweeper) plan() acquire.Plan {
 	rq := &w.rq
-	tops := map[string]float64{}
+	overloads := map[string]int{}
 	for _, m := range w.bench.Meters {
-		if n := len(m.Ranges); n > 0 {
-			tops[m.Role] = m.Ranges[n-1].Top
+		if len(m.Ranges) > 1 { // it may show one when it changes its range
+			overloads[m.Role] = 2
 		}
 	}
 	gate := slices.ContainsFunc(w.bench.Supplies, func(s bench.Supply) bool { return s.Drives == "gate" })
@@ -231,7 +231,7 @@ func (w *sweeper) plan() acquire.Plan {
 	}
 	p := acquire.Plan{
 		Mode: rq.Mode, From: rq.From, To: rq.To, Step: rq.Step, Idle: w.part.IdleCurrent, Settle: rq.Settle,
-		Channel: w.part.Channel, PartMode: w.part.Mode, OffVoltage: record.Known(offVoltage(w.part)), Limits: w.limits, Circuit: w.given,
+		Channel: w.part.Channel, PartMode: w.part.Mode, OffVoltage: record.Known(offVoltage(w.part)), Limits: w.limits, Overloads: overloads, Circuit: w.given,
 		DrivesGate: driven && gate, DrivesDrain: driven && drain, Roles: w.roles, Scale: w.scale,
 		Pairs: func() acquire.Pairs { return acquire.NewPairer(w.pairing()) },
 	}

@@ -90,6 +90,9 @@ func (w *sweeper) caution(ctx context.Context, steps ...acquire.Step) error {
 	if err != nil || seen {
 		return storeFailure(err)
 	}
+	if w.keys == nil && w.sim != nil { // nobody is there, and nothing that could hurt
+		return nil
+	}
 	if w.keys == nil {
 		for _, t := range texts {
 			w.env.talk("caution: %s", t)
