@@ -194,7 +194,7 @@ func (q *Pairer) resolved(pace *channel, c conversion) bool {
 		if o.sameLine(pace) && o.heard >= c.at {
 			continue
 		}
-		if n := len(o.convs); n > 0 && o.convs[n-1].t >= c.t {
+		if n := len(o.convs); n > 0 && o.convs[n-1].t >= c.t+q.apart(o, pace, c) {
 			continue
 		}
 		if q.newest > o.since(q.first)+o.silence()+outOfOrder {
@@ -203,6 +203,15 @@ func (q *Pairer) resolved(pace *channel, c conversion) bool {
 		return false
 	}
 	return true
+}
+
+// apart is by how much a conversion of o must be later than the conversion c of the
+// pace to be so for certain, s.
+func (q *Pairer) apart(o, pace *channel, c conversion) float64 {
+	if o.role != Gate || o == pace || o.sameLine(pace) {
+		return 0
+	}
+	return o.unsure(o.cycleAt(c.t)) + pace.unsure(c.cycle)
 }
 
 // outOfOrder is by how much meters may be heard out of order, s.

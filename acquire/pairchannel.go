@@ -140,8 +140,9 @@ func (c *channel) add(r record.Reading) {
 	changed := c.rangeChanged(n.digit)
 	if changed || c.skip > 0 {
 		c.report.RangeChanges++
-		c.skip--
-		if changed {
+		if c.skip > 0 { // after an overload the first on the new range is this one
+			c.skip--
+		} else {
 			c.skip = 1
 		}
 		c.pending = nil

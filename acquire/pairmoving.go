@@ -10,6 +10,10 @@ const (
 	// aliasing multiplies T²/8 of the second difference: the chord of a rate that swings
 	// with period P > 2T bends by T²/8 / cos²(πT/2P) of it, at most twice (re-derived).
 	aliasing = 2
+	// jerky takes its place where the gate started, stopped, turned back or was nudged: between
+	// two readings the way may then have been made at any one moment.
+	jerky      = 8
+	jerkyShare = 0.25 // of the greater rate: the lesser one is below
 	// unseen is the share of the way moved in a cycle by which a swing too fast for the
 	// second difference may still bend it, see TestInterpolatedBound.
 	unseen = 0.05
@@ -142,13 +146,17 @@ func (q *Pairer) movingBound(i instant, g *channel, k int) float64 {
 		s := (y.v - x.v) / dt
 		rate = math.Max(rate, (math.Abs(y.v-x.v)+y.digit)/dt)
 		if beforeDt > 0 {
-			change = math.Max(change, math.Abs(s-before)/((dt+beforeDt)/2))
+			factor := float64(aliasing)
+			if lo := min(s*before, s*s, before*before); lo < jerkyShare*max(s*s, before*before) {
+				factor = jerky
+			}
+			change = math.Max(change, factor*math.Abs(s-before)/((dt+beforeDt)/2))
 		}
 		before, beforeDt = s, dt
 	}
 	rate *= peakRate
 	dt := g.convs[k].t - g.convs[k-1].t
-	bend := aliasing*change*dt*dt/8 + unseen*rate*dt
+	bend := change*dt*dt/8 + unseen*rate*dt
 	smear := rate * i.pace.timing.Integration
 	return rate*(g.unsure(g.convs[k].cycle)+i.pace.unsure(i.c.cycle)) + bend + smear*smear/(24*weakInversion)
 }

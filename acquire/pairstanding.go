@@ -40,6 +40,9 @@ func (c *channel) inWindow(from, to float64) (span, bool) {
 	}
 	last := &convs[len(convs)-1]
 	far := gapCycles*last.cycle + c.timing.Jitter
+	if c.role == Gate && c.from(from) == 0 && convs[0].t-from > last.cycle/2 {
+		return s, false // what was before the first reading is not known
+	}
 	return s, last.cycle > 0 && convs[0].t-from <= far && to-last.t <= far
 }
 
@@ -137,9 +140,9 @@ func (q *Pairer) rearm(digit float64) float64 {
 }
 
 // gateStands looks at the gate from one instant to another, and at the conversion
-// after it, for the gate may have begun to move before the end. extent is the range of
-// all of these, V.
-func (q *Pairer) gateStands(from, to float64) (s span, extent float64, why string) {
+// that is later than the end by more than apart, for the gate may have begun to move
+// before the end. extent is the range of all of these, V.
+func (q *Pairer) gateStands(from, to, apart float64) (s span, extent float64, why string) {
 	g := q.channels[Gate]
 	if g == nil {
 		return s, 0, "no gate meter"
@@ -153,14 +156,16 @@ func (q *Pairer) gateStands(from, to float64) (s span, extent float64, why strin
 	}
 	lo, hi := s.extent()
 	end := to
-	if i := g.from(to); i < len(g.convs) {
+	last := g.from(to + apart)
+	if last == len(g.convs) && !q.ended {
+		return s, 0, "the gate meter is silent"
+	}
+	for i := g.after(to); i <= last && i < len(g.convs); i++ {
 		next := &g.convs[i]
-		if i > 0 && next.t > to && (!next.whole || !next.number()) {
+		if !next.whole || !next.number() {
 			return s, 0, "a reading of the gate was lost"
 		}
 		lo, hi, end = math.Min(lo, next.v), math.Max(hi, next.v), next.t
-	} else if !q.ended {
-		return s, 0, "the gate meter is silent"
 	}
 	extent = hi - lo
 	digit := s.digit()
@@ -180,7 +185,11 @@ func (q *Pairer) judge(i instant) {
 	from := to - w
 	j := judgement{t: to}
 	frozen := q.isFrozen(to)
-	gate, extent, why := q.gateStands(from, to)
+	g, apart := q.channels[Gate], 0.0
+	if g != nil {
+		apart = q.apart(g, i.pace, i.c)
+	}
+	gate, extent, why := q.gateStands(from, to, apart)
 	j.why = why
 	if j.stands = why == ""; !j.stands {
 		q.release(from)
@@ -193,6 +202,8 @@ func (q *Pairer) judge(i instant) {
 	q.release(from)
 	q.held = q.held[:0] // what is left of them is of this plateau
 	var spans []span
+	// What the others said before the first reading of the gate was not watched.
+	from = gate.convs[0].t + apart
 	for _, role := range joined {
 		c := q.channels[role]
 		if c == nil || role == Gate || c != i.pace && c.away(from, to) {
@@ -222,12 +233,13 @@ func (q *Pairer) judge(i instant) {
 	} else if !j.taken {
 		q.last, j.taken = vg, true
 		q.report.Settled++
-		q.points = append(q.points, q.settledPoint(i, gate, spans, extent, w))
+		q.points = append(q.points, q.settledPoint(i, gate, spans, extent, from))
 	}
 	q.state = j
 }
 
-// settledPoint is the means over a window of length w.
+// settledPoint is the means over a window: of the gate over all of it, of the others
+// from when it was watched.
 //
 // While the gate stands still it may go anywhere within the extent of its readings, widened by
 // one count. The means over two sets of instants, n1 and n2 evenly over the window and shifted by
@@ -236,7 +248,7 @@ func (q *Pairer) judge(i instant) {
 // the window (re-derived; exact for one step at any moment). Averages of the current
 // over a gate that moves so little are off by less than 0.01 mV in weak inversion,
 // which is left out.
-func (q *Pairer) settledPoint(i instant, gate span, spans []span, extent, w float64) Point {
+func (q *Pairer) settledPoint(i instant, gate span, spans []span, extent, from float64) Point {
 	vg, t := gate.mean()
 	p := NewPoint(t)
 	p.Settled, p.N = true, len(gate.convs)
@@ -255,9 +267,9 @@ func (q *Pairer) settledPoint(i instant, gate span, spans []span, extent, w floa
 	}
 	if !gate.c.sameLine(i.pace) && gate.c != i.pace {
 		u := gate.c.unsure(gate.convs[0].cycle) + i.pace.unsure(i.c.cycle)
-		p.Bound = (extent + gate.digit()) * math.Min(1, 1/float64(fewest)+u/w)
+		p.Bound = (extent + gate.digit()) * math.Min(1, 1/float64(fewest)+u/(i.c.t-from))
 	}
-	q.join(&p, i, i.c.t-w, i.c.t)
+	q.join(&p, i, from, i.c.t)
 	return p
 }
 

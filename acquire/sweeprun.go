@@ -174,6 +174,9 @@ func (r *Runner) Event(e Event) []Order {
 	case e.Err != nil && len(e.Readings) == 0:
 		r.bad(e)
 	}
+	if len(e.Readings) > 0 {
+		delete(r.lostLines, e.Line)
+	}
 	for _, rd := range e.Readings {
 		rd = r.prefix.Apply(rd)
 		r.turned(rd)

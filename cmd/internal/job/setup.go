@@ -78,6 +78,7 @@ func curveOf(sw *record.Sweep) fit.Curve {
 	c := fit.Curve{
 		Vg: sw.Values(record.VG), Id: sw.Values(record.ID), Vl: sw.Values(record.VL),
 		Vd: sw.Values(record.VD), Vdd: sw.Values(record.VDD), Gm: sw.Values(record.GM),
+		VgBound: sw.Values(record.PairBound),
 	}
 	over := func(xs *[]float64, i int, sign int) {
 		if i < len(*xs) {
