@@ -76,7 +76,6 @@ type sim struct {
 	drainOn  bool
 	open     bool // the gate supply does not follow
 	hand     bool
-	hasty    bool // stands still too short
 	stopTurn float64
 	lookAt   float64
 

@@ -93,8 +93,9 @@ func (r *Runner) bringing() {
 			r.nearLimit("V_GS")
 			return
 		}
-		step, why := r.reach(math.Min(far, r.end()-u), at)
+		step, _ := r.reach(math.Min(far, r.end()-u), at)
 		if step = whole(step, 0.001); step < 0.001 {
+			var why string
 			if step, why = r.reach(0.001, math.Inf(1)); step < 0.001-1e-9 {
 				r.nearLimit(why)
 				return
