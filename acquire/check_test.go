@@ -286,7 +286,7 @@ func TestInterlock(t *testing.T) {
 			}
 			now := 100.0
 			for role, v := range map[string]float64{Gate: x.vg, Current: x.id, Supply: x.supply} {
-				l.Event(Event{Readings: []record.Reading{said(role, now-x.age, v)}})
+				l.Event(Event{Readings: []record.Reading{reads(role, now-x.age, v)}})
 			}
 			if m := strings.Join(l.Missing(now), "; "); l.Open(now) != x.open || !strings.Contains(m, x.want) {
 				t.Errorf("%s, %s: open %v, missing %q", k.name, x.name, l.Open(now), m)
@@ -294,7 +294,7 @@ func TestInterlock(t *testing.T) {
 		}
 	}
 	l := NewInterlock(testPlan(ByHand))
-	l.Event(Event{Readings: []record.Reading{said(Gate, 10, 0), over(Current, 10)}})
+	l.Event(Event{Readings: []record.Reading{reads(Gate, 10, 0), overloaded(Current, 10)}})
 	if m := strings.Join(l.Missing(10.1), "; "); !strings.Contains(m, "over its range") {
 		t.Errorf("overload: missing %q", m)
 	}
@@ -309,9 +309,9 @@ func TestInterlock(t *testing.T) {
 	if l.Open(10.2) {
 		t.Errorf("drain supply on again, open")
 	}
-	held := said(Gate, 11, 0)
+	held := reads(Gate, 11, 0)
 	held.Refused = "held"
-	l.Event(Event{Readings: []record.Reading{held, said(Current, 11, 0)}})
+	l.Event(Event{Readings: []record.Reading{held, reads(Current, 11, 0)}})
 	if m := strings.Join(l.Missing(11.1), "; "); !strings.Contains(m, "held") {
 		t.Errorf("held gate meter: missing %q", m)
 	}

@@ -34,7 +34,7 @@ type Settling struct {
 	isDone bool
 }
 
-// Accepted is the reading that was accepted.
+// Accepted is the reading that was taken.
 type Accepted struct {
 	After float64 // s, from the first reading
 	Value float64 // as it was read
@@ -68,8 +68,8 @@ func (g *Settling) Add(at, v float64) {
 	}
 }
 
-// Accepted gives the reading that was accepted, once there is one; it stays.
-func (g *Settling) Accepted() (Accepted, bool) { return g.taken, g.isDone }
+// Taken gives the reading that was accepted, once there is one; it stays.
+func (g *Settling) Taken() (Accepted, bool) { return g.taken, g.isDone }
 
 // slope is that of the line of least squares through the last window, unit/s; false while
 // the window is not full or has holes.

@@ -41,7 +41,7 @@ func TestSettleScenario(t *testing.T) {
 	for i := range at {
 		g.Add(at[i], v[i])
 		fixed.Add(at[i], v[i])
-		if _, done := g.Accepted(); done != (at[i] >= 147) {
+		if _, done := g.Taken(); done != (at[i] >= 147) {
 			t.Fatalf("done %v at %g s", done, at[i])
 		}
 		if math.Mod(at[i], 15) != 0 && at[i] != 44 && at[i] != 147 {
@@ -67,10 +67,10 @@ func TestSettleScenario(t *testing.T) {
 			t.Logf("%3g s: %.4f V ± %.2f mV, time constant %.0f s", at[i], ahead.Value, 1e3*ahead.U, ahead.Tau)
 		}
 	}
-	if x, _ := g.Accepted(); x.After != 147 || x.Value != 3.362 || x.Blind || !(math.Abs(x.Slope) <= settleSlope) {
+	if x, _ := g.Taken(); x.After != 147 || x.Value != 3.362 || x.Blind || !(math.Abs(x.Slope) <= settleSlope) {
 		t.Errorf("%+v", x)
 	}
-	if x, ok := fixed.Accepted(); !ok || x.After != 60 || x.Value != 3.373 {
+	if x, ok := fixed.Taken(); !ok || x.After != 60 || x.Value != 3.373 {
 		t.Errorf("%+v", x)
 	}
 }
@@ -137,7 +137,7 @@ func TestSettleRule(t *testing.T) {
 				g.Add(x, f(x))
 			}
 		}
-		return g.Accepted()
+		return g.Taken()
 	}
 	never := func(float64) bool { return false }
 	flat := func(float64) float64 { return 3 }
