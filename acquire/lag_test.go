@@ -12,7 +12,7 @@ import (
 
 // lagRun draws true lags of the gate and the current within ±150 ms that the program does not
 // know, and finds them from a ramp up and one down at rate r. It returns the error and what was stated, s.
-func lagRun(t *testing.T, seed uint64, r float64, meters func(*rand.Rand) []simMeter) (e, u float64) {
+func lagRun(t *testing.T, seed uint64, r float64, meters func(*rand.Rand) []pairMeter) (e, u float64) {
 	t.Helper()
 	g := rand.New(rand.NewPCG(seed, uint64(1e6*r)))
 	ms := meters(g)

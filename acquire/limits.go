@@ -221,7 +221,7 @@ func (g *Guard) drain() float64 {
 // Look gives what the guard sees now.
 func (g *Guard) Look() Watch {
 	w := Watch{Vgs: g.last[Gate].max(), Vds: g.drain(), ID: g.current(), Temp: g.last[Temperature].max()}
-	w.PD = product(w.Vds, w.ID)
+	w.PD = g.power(w.Vds, w.ID)
 	w.Resistor = math.NaN()
 	if rl := g.circuit.RL.Float(); rl > 0 && g.circuit.Circuit != record.Fixed {
 		w.Resistor = product(w.ID, w.ID) * rl
@@ -239,6 +239,29 @@ func (g *Guard) Look() Watch {
 	return w
 }
 
+// power gives the greatest power in the device. Two meters that do not read at one
+// instant are multiplied at their worst. On a load line of a known supply without a
+// drain meter each meter tells the power by itself, so that a gate that was just
+// turned back does not pass for a device with all current and all voltage at once.
+func (g *Guard) power(vds, id float64) float64 {
+	worst := product(vds, id)
+	vdd, rl := g.supply(), g.circuit.RL.Float()
+	if g.circuit.Circuit != record.Load || g.last[Drain] != nil || !(vdd > 0) || !(rl > 0) || math.IsInf(worst, 1) {
+		return worst
+	}
+	pd := math.NaN()
+	each := func(role string, drop func(x float64) float64) {
+		l := g.last[role]
+		for k := 0; l != nil && k < l.n; k++ {
+			vl := drop(l.v[k])
+			pd = greater(pd, vl/rl*math.Max(0, vdd-vl))
+		}
+	}
+	each(Load, func(x float64) float64 { return x })
+	each(Current, func(x float64) float64 { return x * rl })
+	return pd
+}
+
 // expected gives the shares that a drain current id (A, magnitude) at a gate
 // voltage vg (V, magnitude) would take, on the way there and on the way back: with
 // the whole of V_DD across the device, as the last two values of each meter will
@@ -248,7 +271,7 @@ func (g *Guard) expected(vg, id float64) []Share {
 	if g.circuit.Circuit == record.Diode {
 		vds = greater(g.last[Gate].max(), vg)
 	}
-	shares := []Share{{"V_GS", "V", vg, g.limits.Vgs}, {"I_D", "A", id, g.limits.ID}, {"P_D", "W", product(vds, id), g.limits.PD}}
+	shares := []Share{{"V_GS", "V", vg, g.limits.Vgs}, {"I_D", "A", id, g.limits.ID}, {"P_D", "W", math.Min(product(vds, id), g.mostPower()), g.limits.PD}}
 	if rl := g.circuit.RL.Float(); rl > 0 && g.circuit.Circuit != record.Fixed {
 		shares = append(shares, Share{"load resistor", "W", id * id * rl, g.circuit.RLRating.Or(0)})
 	}
@@ -272,6 +295,16 @@ func (g *Guard) most() float64 {
 		return math.Inf(1)
 	}
 	return 1.05 * vdd / rl // R_L may be low by its tolerance
+}
+
+// mostPower gives the greatest power that the circuit can put into the device, W;
+// +Inf when nothing bounds it.
+func (g *Guard) mostPower() float64 {
+	vdd, rl := g.supply(), g.circuit.RL.Float()
+	if g.circuit.Circuit != record.Load || !(rl > 0) || math.IsNaN(vdd) {
+		return math.Inf(1)
+	}
+	return 1.05 * vdd * vdd / (4 * rl) // R_L may be low by its tolerance
 }
 
 // greater gives the greater of two numbers, the known one when one is NaN.

@@ -45,7 +45,7 @@ func rates() []float64 {
 
 var benches = []struct {
 	name   string
-	meters func(*rand.Rand) []simMeter
+	meters func(*rand.Rand) []pairMeter
 }{{"3 handhelds", handhelds}, {"slow gate, fast drain", slowGate}, {"3 fast", threeFast}}
 
 var motions = []struct {

@@ -30,7 +30,7 @@ func TestChangeOfRange(t *testing.T) {
 	// After an overload the first on the new range is what is left out.
 	rs = change(rs, Current, func(k int, r *record.Reading) bool {
 		if k == 7 {
-			*r = over(Current, r.At)
+			*r = overOf(Current, r.At)
 		}
 		return true
 	})
@@ -54,10 +54,10 @@ func TestLines(t *testing.T) {
 	for k := range 120 {
 		at := 0.1 * float64(k)
 		vg := 2.8 + 0.05*math.Min(at, 6)
-		for _, r := range []record.Reading{said(Current, at, 1e-3*math.Exp(at/4), 1e-6), said(Gate, at, vg, 1e-4), said(Drain, at, 12-at/10, 1e-3)} {
+		for _, r := range []record.Reading{saidOf(Current, at, 1e-3*math.Exp(at/4), 1e-6), saidOf(Gate, at, vg, 1e-4), saidOf(Drain, at, 12-at/10, 1e-3)} {
 			r.Meter = "board"
 			if at > 6 {
-				r = said(r.Role, at, map[string]float64{Gate: 3.1, Current: 4.48e-3, Drain: 11.4}[r.Role], r.Digit.Float())
+				r = saidOf(r.Role, at, map[string]float64{Gate: 3.1, Current: 4.48e-3, Drain: 11.4}[r.Role], r.Digit.Float())
 				r.Meter = "board"
 			}
 			rs = append(rs, r)
@@ -87,9 +87,9 @@ func TestLines(t *testing.T) {
 func TestOtherRoles(t *testing.T) {
 	rs := standing(0, 12, 3.012, 0.02)
 	for k := range 30 {
-		rs = append(rs, said(Load, 0.02+0.4*float64(k), 0.1, 1e-4), said(Drain, 0.03+0.4*float64(k), 11.9, 1e-2), said(Supply, 0.04+0.4*float64(k), 12.01, 1e-2))
+		rs = append(rs, saidOf(Load, 0.02+0.4*float64(k), 0.1, 1e-4), saidOf(Drain, 0.03+0.4*float64(k), 11.9, 1e-2), saidOf(Supply, 0.04+0.4*float64(k), 12.01, 1e-2))
 	}
-	rs = append(rs, said(Temperature, 0.1, 24.5, 0.1), said(Temperature, 5.1, 25.5, 0.1), said(Temperature, 10.1, 26.5, 0.1))
+	rs = append(rs, saidOf(Temperature, 0.1, 24.5, 0.1), saidOf(Temperature, 5.1, 25.5, 0.1), saidOf(Temperature, 10.1, 26.5, 0.1))
 	points, _ := Pair(byTime(rs), exact())
 	if len(points) != 1 {
 		t.Fatalf("%d points", len(points))

@@ -12,12 +12,12 @@ import (
 )
 
 // said makes the reading of a meter: digits as displayed, in counts of digit.
-func said(role string, at, value, digit float64) record.Reading {
+func saidOf(role string, at, value, digit float64) record.Reading {
 	return record.Reading{Role: role, Meter: role + " meter", At: at, Value: record.Known(rounded(value, digit)), Digit: record.Known(digit),
 		Raw: fmt.Appendf(nil, "%s %.12g", role, value)}
 }
 
-func over(role string, at float64) record.Reading {
+func overOf(role string, at float64) record.Reading {
 	return record.Reading{Role: role, Meter: role + " meter", At: at, State: record.Overload, Raw: []byte(role + " OL")}
 }
 
@@ -26,10 +26,10 @@ func over(role string, at float64) record.Reading {
 func standing(from, to, vg, id float64) []record.Reading {
 	var rs []record.Reading
 	for k := range int((to - from) / 0.3) {
-		rs = append(rs, said(Gate, from+0.3*float64(k), vg, 1e-3))
+		rs = append(rs, saidOf(Gate, from+0.3*float64(k), vg, 1e-3))
 	}
 	for k := range int((to - from) / 0.4) {
-		rs = append(rs, said(Current, from+0.05+0.4*float64(k), id, 1e-5))
+		rs = append(rs, saidOf(Current, from+0.05+0.4*float64(k), id, 1e-5))
 	}
 	return byTime(rs)
 }
@@ -120,10 +120,10 @@ func TestStandingStill(t *testing.T) {
 	}
 	base := func() []record.Reading { return standing(0, 6, 3, 20e-3) }
 	gate := func(f func(at float64) float64) []record.Reading {
-		return change(base(), Gate, func(_ int, r *record.Reading) bool { *r = said(Gate, r.At, f(r.At), 1e-3); return true })
+		return change(base(), Gate, func(_ int, r *record.Reading) bool { *r = saidOf(Gate, r.At, f(r.At), 1e-3); return true })
 	}
 	id := func(digit float64, f func(at float64) float64) []record.Reading {
-		return change(base(), Current, func(_ int, r *record.Reading) bool { *r = said(Current, r.At, f(r.At), digit); return true })
+		return change(base(), Current, func(_ int, r *record.Reading) bool { *r = saidOf(Current, r.At, f(r.At), digit); return true })
 	}
 	back := func(at float64) float64 { return 3 + 1e-3*math.Mod(math.Round(at/0.3), 4) } // 0 1 2 3 0 1 2 3 mV
 	count("flicker of 3 counts", gate(back), exact(), 0)
@@ -154,7 +154,7 @@ func TestLeftOut(t *testing.T) {
 		{"lost", func(*record.Reading) bool { return false }, func(r Report) int { return r.Gaps }, 0},
 		{"held", func(r *record.Reading) bool { r.Refused = "held"; return true }, func(r Report) int { return r.Refused }, 0},
 		{"wild", func(r *record.Reading) bool { r.Value = record.Known(0.3012); return true }, func(r Report) int { return r.Jumps }, 0},
-		{"overload", func(r *record.Reading) bool { *r = over(Gate, r.At); return true }, func(r Report) int { return r.States }, 0},
+		{"overload", func(r *record.Reading) bool { *r = overOf(Gate, r.At); return true }, func(r Report) int { return r.States }, 0},
 		{"earlier than the last", func(r *record.Reading) bool { r.At = 0.7; return true }, func(r Report) int { return r.Refused }, 0},
 		{"no time", func(r *record.Reading) bool { r.At = math.NaN(); return true }, func(r Report) int { return r.Refused }, 0},
 	} {
@@ -191,7 +191,7 @@ func TestLeftOut(t *testing.T) {
 	// Sent twice half a cycle apart, it takes the bench file to know.
 	twice = twice[:0]
 	for k := range 60 {
-		twice = append(twice, said(Gate, 0.15*float64(k), 3+1e-3*float64(k/2%2), 1e-3), said(Current, 0.01+0.15*float64(k), 0.02, 1e-5))
+		twice = append(twice, saidOf(Gate, 0.15*float64(k), 3+1e-3*float64(k/2%2), 1e-3), saidOf(Current, 0.01+0.15*float64(k), 0.02, 1e-5))
 	}
 	p := exact()
 	p.Twice = map[string]bool{Gate: true}
@@ -211,11 +211,11 @@ func TestGapsOnTheMove(t *testing.T) {
 		var rs []record.Reading
 		for k := range 60 {
 			at := 0.3 * float64(k)
-			rs = append(rs, said(Gate, at, 2.8+5e-3*at, 1e-3))
+			rs = append(rs, saidOf(Gate, at, 2.8+5e-3*at, 1e-3))
 		}
 		for k := range 45 {
 			at := 0.05 + 0.4*float64(k)
-			rs = append(rs, said(Current, at, 1e-3*math.Exp(at/10), 1e-6))
+			rs = append(rs, saidOf(Current, at, 1e-3*math.Exp(at/10), 1e-6))
 		}
 		return byTime(rs)
 	}
@@ -247,7 +247,7 @@ func TestGapsOnTheMove(t *testing.T) {
 		{"lost", Gate, func(k int, r *record.Reading) bool { return k != 30 }, instant(28), instant(32)},
 		{"overload", Gate, func(k int, r *record.Reading) bool {
 			if k == 30 {
-				*r = over(Gate, r.At)
+				*r = overOf(Gate, r.At)
 			}
 			return true
 		}, instant(28), instant(33)},
@@ -266,7 +266,7 @@ func TestGapsOnTheMove(t *testing.T) {
 	// Of the current: overload gives no point on the move, nor does what follows it.
 	points, _ := Pair(change(moving(), Current, func(k int, r *record.Reading) bool {
 		if k == 20 {
-			*r = over(Current, r.At)
+			*r = overOf(Current, r.At)
 		}
 		return true
 	}), exact())
@@ -295,7 +295,7 @@ func TestGapsOnTheMove(t *testing.T) {
 
 // A current over the range while the gate stands still is a point of its own kind.
 func TestOverloadOfTheCurrent(t *testing.T) {
-	rs := change(standing(0, 6, 3.3, 1), Current, func(_ int, r *record.Reading) bool { *r = over(Current, r.At); return true })
+	rs := change(standing(0, 6, 3.3, 1), Current, func(_ int, r *record.Reading) bool { *r = overOf(Current, r.At); return true })
 	points, _ := Pair(rs, exact())
 	wantSettled(t, "overload", points, 3.3)
 	want := []record.Mark{{Quantity: record.ID, State: record.Overload, Raw: "current OL"}}
@@ -305,7 +305,7 @@ func TestOverloadOfTheCurrent(t *testing.T) {
 	// Not when a number was among them.
 	rs = change(standing(0, 2.4, 3.3, 1), Current, func(k int, r *record.Reading) bool {
 		if k != 3 {
-			*r = over(Current, r.At)
+			*r = overOf(Current, r.At)
 		}
 		return true
 	})
@@ -351,13 +351,13 @@ func TestLostAndStuck(t *testing.T) {
 	frozen = append(frozen, standing(4, 12, 3, 0.02)...)
 	frozen = change(frozen, Current, func(k int, r *record.Reading) bool {
 		if r.At > 3.5 {
-			*r = said(Current, r.At, 0.02+0.01*math.Min(4, math.Floor(r.At-2.5)), 1e-5)
+			*r = saidOf(Current, r.At, 0.02+0.01*math.Min(4, math.Floor(r.At-2.5)), 1e-5)
 		}
 		return true
 	})
 	frozen = change(frozen, Gate, func(k int, r *record.Reading) bool {
 		if k < 10 {
-			*r = said(Gate, r.At, 2.9, 1e-3)
+			*r = saidOf(Gate, r.At, 2.9, 1e-3)
 		}
 		return true
 	})
@@ -375,7 +375,7 @@ func TestLostAndStuck(t *testing.T) {
 	}
 	// A part that warms up by 3 %/s at a steady gate is no frozen meter, but worth a look.
 	warm := change(standing(0, 8, 3, 0.02), Current, func(_ int, r *record.Reading) bool {
-		*r = said(Current, r.At, 0.02*(1+0.1*(1-math.Exp(-r.At/2))), 1e-5)
+		*r = saidOf(Current, r.At, 0.02*(1+0.1*(1-math.Exp(-r.At/2))), 1e-5)
 		return true
 	})
 	points, report = Pair(warm, exact())

@@ -67,7 +67,7 @@ type Plan struct {
 
 	Roles  []string           // of the meters at hand
 	Cycle  map[string]float64 // s between readings, by role [learned]
-	Silent map[string]float64 // s without a reading until a meter counts as silent [max(3 cycles, 1 s)]
+	Silent map[string]float64 // s without a reading until a meter counts as silent [max(3.5 cycles, 1 s)]
 	Scale  map[string]float64 // factor on the readings of a role whose meter says the wrong prefix [1]
 
 	Predict Predictor    // [from the last points, on the safe side]

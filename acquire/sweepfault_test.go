@@ -134,7 +134,7 @@ func TestSilentMeterByHand(t *testing.T) {
 		}
 	}
 	s.run(4)
-	// The meter speaks every 0.25 s: stale after max(2 T, 0.5 s), silent after max(3 T, 1 s).
+	// The meter speaks every 0.25 s: stale after max(2 T, 0.5 s), silent after max(3.5 T, 1 s).
 	if stale < 0.2 || stale > 0.65 || paused < 0.7 || paused > 1.2 {
 		t.Errorf("stale after %.2f s, paused after %.2f s", stale, paused)
 	}
@@ -154,7 +154,8 @@ func TestSilentMeterByHand(t *testing.T) {
 }
 
 // Scenario 7: at 0.45 s a frame a meter that was switched off is stale after two
-// frames, 0.9 s, and silent after three.
+// frames, 0.9 s, and silent after three and a half: a change to a lower range costs
+// two conversions.
 func TestStaleAfterTwoFrames(t *testing.T) {
 	e := newEars(nil, nil)
 	for i := range 10 {
@@ -164,7 +165,7 @@ func TestStaleAfterTwoFrames(t *testing.T) {
 	for _, c := range []struct {
 		age           float64
 		stale, silent bool
-	}{{0.4, false, false}, {0.89, false, false}, {0.91, true, false}, {1.34, true, false}, {1.36, true, true}} {
+	}{{0.4, false, false}, {0.89, false, false}, {0.91, true, false}, {1.57, true, false}, {1.58, true, true}} {
 		if stale, silent := math.IsNaN(e.number(Current, last+c.age)), e.isSilent(Current, last+c.age); stale != c.stale || silent != c.silent {
 			t.Errorf("%.2f s old: stale %v, silent %v", c.age, stale, silent)
 		}

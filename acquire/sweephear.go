@@ -27,6 +27,7 @@ type voice struct {
 	any          float64 // s, when the last frame came that could be read, refused ones too
 	state        record.PointState
 	refused      string
+	ranging      bool // the last frame was an overload, or the first on another range
 	number       bool // the last frame was a number that counts
 	frames       int
 	count        int // numbers since the last call of mark
@@ -69,7 +70,9 @@ func (e *ears) hear(r record.Reading) {
 	v.state, v.refused = r.State, r.Refused
 	x, known := r.Value.Get()
 	v.number = known && r.State == "" && r.Refused == ""
-	if r.Refused == "" && (v.number || r.State == record.Overload || r.State == record.Underload) {
+	// A meter that changes its range is not silent.
+	v.ranging = r.State == record.Overload || r.State == record.Underload || r.Refused == "range changed"
+	if r.Refused == "" && v.number || v.ranging {
 		v.heard = r.At
 	}
 	if !v.number {
@@ -126,9 +129,14 @@ func (e *ears) isSilent(role string, now float64) bool {
 	limit := e.silent[role]
 	if limit <= 0 {
 		limit = 1
-		switch t := e.period(role); {
-		case 3*t > 1:
-			limit = 3 * t
+		t := e.period(role)
+		cycles := 3.5 // three, and what arrives late: a change to a lower range costs two conversions
+		if e.of(role).ranging {
+			cycles += 2
+		}
+		switch {
+		case cycles*t > 1:
+			limit = cycles * t
 		case math.IsNaN(t):
 			limit = 3 // how often it speaks is not known yet
 		}
@@ -158,8 +166,13 @@ func (e *ears) contradicted(role string) bool {
 	case Gate:
 		return moved(Current, 0.05*math.Abs(e.of(Current).value)) || moved(Load, 0.05*math.Abs(e.of(Load).value))
 	case Current, Load:
-		// Below ten counts a current may stand still on its display.
-		return !(math.Abs(v.value) <= 10*v.digit) && moved(Gate, 0.02)
+		// Below ten counts a current may stand still on its display, and where a count
+		// is not known, below what counts as a current at all.
+		least := noCurrent
+		if v.digit > 0 {
+			least = 10 * v.digit
+		}
+		return math.Abs(v.value) > least && moved(Gate, 0.02)
 	}
 	return false
 }

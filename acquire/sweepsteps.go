@@ -243,7 +243,7 @@ func (r *Runner) lastCurrent() float64 {
 	if m := r.plan.Limits.ID; m > 0 {
 		i = math.Min(i, stepShare*m)
 	}
-	if m, vds := r.plan.Limits.PD, r.guard.open(); m > 0 && vds > 0 {
+	if m, vds := r.plan.Limits.PD, r.guard.open(); m > 0 && vds > 0 && !(r.guard.mostPower() <= stepShare*m) {
 		i = math.Min(i, stepShare*m/vds)
 	}
 	return i
@@ -256,6 +256,8 @@ func (r *Runner) far(u, id float64) (why string, ok bool) {
 		return "the end of the sweep", true
 	case u >= r.end()-1e-6:
 		return "the greatest gate voltage is reached", true
+	case !r.plan.To.IsKnown() && id >= ohmic*r.guard.most():
+		return "the load resistor sets the current", true
 	case id >= r.lastCurrent()*0.98:
 		if idle, known := r.plan.Idle.Get(); known && id >= beyond*math.Abs(idle)*0.98 {
 			return fmt.Sprintf("the idle current is passed by %.0f %%", 100*(beyond-1)), true

@@ -79,6 +79,15 @@ type remarkLine struct {
 // returned too, with its refusals and what was recognised of its text.
 func ReadFile(path string, opt Options) (*File, error) {
 	r := newReader(path, opt)
+	raw, err := r.load(path)
+	if err != nil {
+		return nil, err
+	}
+	return r.read(raw)
+}
+
+// load takes in the bytes of a file.
+func (r *reader) load(path string) ([]byte, error) {
 	f, err := os.Open(path)
 	if err != nil {
 		return nil, r.ioError(err)
@@ -95,13 +104,18 @@ func ReadFile(path string, opt Options) (*File, error) {
 	if info.Mode().IsRegular() {
 		size = info.Size()
 	}
-	return r.readAll(f, size)
+	return r.takeIn(f, size)
 }
 
 // Read reads a table from r; name is what the file is called, and names the
 // device in a file without device column. Errors as of [ReadFile].
 func Read(name string, rd io.Reader, opt Options) (*File, error) {
-	return newReader(name, opt).readAll(rd, -1)
+	r := newReader(name, opt)
+	raw, err := r.takeIn(rd, -1)
+	if err != nil {
+		return nil, err
+	}
+	return r.read(raw)
 }
 
 func newReader(path string, opt Options) *reader {
@@ -124,9 +138,9 @@ func (r *reader) ioError(err error) error {
 	return &Error{File: r.place, Err: fmt.Errorf("%w: %s: %w", ErrRefused, what, err)}
 }
 
-// readAll takes in the bytes, looking at the first of them before it asks for
+// takeIn takes in the bytes, looking at the first of them before it asks for
 // the rest.
-func (r *reader) readAll(rd io.Reader, size int64) (*File, error) {
+func (r *reader) takeIn(rd io.Reader, size int64) ([]byte, error) {
 	limit := r.opt.MaxBytes
 	if limit <= 0 {
 		limit = defaultMax
@@ -154,7 +168,7 @@ func (r *reader) readAll(rd io.Reader, size int64) (*File, error) {
 	if int64(len(raw)) > limit {
 		return nil, r.tooLarge(int64(len(raw)), limit)
 	}
-	return r.read(raw)
+	return raw, nil
 }
 
 // readUpTo reads on behind what buf holds, until it holds n bytes or more or

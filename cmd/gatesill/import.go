@@ -14,7 +14,7 @@ import (
 
 func importCmd(env *job.Env) *cobra.Command {
 	var rq job.ImportRequest
-	var columns, units []string
+	var columns, units, logs, times []string
 	var circuit, ammeter, tempOf, channel string
 	g := &rq.Table.Given
 	cmd := &cobra.Command{
@@ -27,12 +27,21 @@ the file is refused with a hint. Each file is stored whole or not at all. - is
 stdin.
 
 Without --circuit only constant-current values can be had.
-A file with a lot column gives LOT its own rows.`,
+A file with a lot column gives LOT its own rows.
+
+With --meter-logs no FILE is named: logs that were recorded meter by meter are
+brought to one time and made into curves. Their clocks may differ, and what the
+readings tell of that is corrected and printed. A file of notes with times
+("10:02:03 device D7 in", "10:09 removed") says which device was measured when;
+without one it is --device NAME, or the devices are numbered where the gate comes
+back to off.`,
 		Example: `  gatesill import bag1 curves.csv --circuit load --rl 10 --vdd 12V
   gatesill import bag1 D*.csv --circuit diode --temp 25C --bench attic.toml
   gatesill import bag2 list.csv --spot-current 10mA --units vg=V
-  gatesill import bag3 odd.txt --map vg=2,id=U_R --decimal comma --dry-run`,
-		Args: between(2, -1),
+  gatesill import bag3 odd.txt --map vg=2,id=U_R --decimal comma --dry-run
+  gatesill import bag4 --meter-logs gate=vg.csv,current=id.csv,load=vl.txt,notes=notes.txt \
+    --circuit load --rl 10 --vdd 12V`,
+		Args: between(1, -1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			rq.Lot, rq.Files, rq.Stdin = args[0], args[1:], cmd.InOrStdin()
 			g.Circuit, g.Ammeter, g.TempOf, rq.Channel = record.Circuit(circuit), ammeter, tempOf, record.Channel(channel)
@@ -55,6 +64,15 @@ A file with a lot column gives LOT its own rows.`,
 			}
 			if x, ok := g.RL.Get(); ok && x <= 0 {
 				return job.Usage("--rl 10", "--rl: %g ohm, must be above 0", x)
+			}
+			if rq.MeterLogs, err = rolePairs("meter-logs", "gate=FILE,current=FILE,load=FILE,notes=FILE", logs); err != nil {
+				return err
+			}
+			if rq.LogTimes, err = rolePairs("log-times", "current=elapsed", times); err != nil {
+				return err
+			}
+			if err := checkLogs(&rq); err != nil {
+				return err
 			}
 			return job.Import(cmd.Context(), env, rq)
 		},
@@ -82,6 +100,11 @@ A file with a lot column gives LOT its own rows.`,
 	fs.StringVar(&rq.Fixture, "fixture", "", "`NAME` of the fixture")
 	fs.StringVar(&rq.Session, "session", "", "`NAME` of the sitting")
 	fs.StringVar(&rq.Bench, "bench", "", "bench `FILE` with meters, accuracy and circuit (gatesill help bench-file)")
+	fs.StringSliceVar(&logs, "meter-logs", nil, "logs of single meters, instead of files: `gate=FILE,current=FILE,load=FILE,drain=FILE,notes=FILE`")
+	fs.StringVar(&rq.Device, "device", "", "`NAME` of the one device in the meter logs")
+	fs.StringSliceVar(&times, "log-times", nil, "what times of a log are: `current=elapsed`, =clock, when elapsed 0 was, or the role whose clock counts")
+	fs.StringVar(&rq.LogZone, "log-zone", "", "`ZONE` of times without one in the meter logs: +02:00")
+	fs.StringVar(&rq.LogDate, "log-date", "", "`DATE` of the first time of day in the meter logs: YYYY-MM-DD")
 	fs.BoolVar(&rq.Table.Strict, "strict", false, "refuse a file with any row refused")
 	fs.BoolVar(&rq.DryRun, "dry-run", false, "only tell what would be read")
 	fs.BoolVar(&rq.Again, "again", false, "read a file again that was imported before")

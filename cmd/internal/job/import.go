@@ -35,6 +35,12 @@ type ImportRequest struct {
 	DryRun                     bool
 	Again                      bool // import although seen before
 	Stdin                      io.Reader
+
+	MeterLogs map[string]string // logs of single meters by role, and "notes"; Files is empty then
+	Device    string            // of all readings in the logs; "": by notes, or by the gate
+	LogTimes  map[string]string // by role, as of replay.Options
+	LogZone   string
+	LogDate   string
 }
 
 // rowsAlike is how many points a sweep must have before the same ones under
@@ -58,6 +64,9 @@ func Import(ctx context.Context, env *Env, rq ImportRequest) error {
 		return err
 	}
 	defer im.close()
+	if len(rq.MeterLogs) > 0 {
+		return im.meterLogs(ctx)
+	}
 	doc := report.ImportDoc{Lot: rq.Lot, Files: make([]report.ImportFile, len(rq.Files))}
 	code := ExitDone
 	todo := make([]int, len(rq.Files))
@@ -245,8 +254,7 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	if prior, ok, err := im.seenBefore(ctx, name, data); err != nil {
 		return out, err
 	} else if ok && !im.rq.Again {
-		out.Fate, out.Layout = report.FateSeen, prior.Layout
-		out.Reason = fmt.Sprintf("the same bytes were imported as %s on %s; nothing was changed. To read the file anew, with what is given now, use --again: the earlier sweeps are set aside", report.Clean(prior.Name), prior.ImportedAt[:10])
+		out.Fate, out.Layout, out.Reason = report.FateSeen, prior.Layout, seenReason(prior)
 		return out, nil
 	}
 	opt, progress := im.options(ctx, display)
@@ -306,6 +314,11 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	return out, nil
 }
 
+// seenReason says that a source was imported before, and what to do about it.
+func seenReason(prior record.Source) string {
+	return fmt.Sprintf("the same bytes were imported as %s on %s; nothing was changed. To read the file anew, with what is given now, use --again: the earlier sweeps are set aside", report.Clean(prior.Name), prior.ImportedAt[:10])
+}
+
 // seenBefore looks for the same bytes among the lot's sources.
 func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (prior record.Source, ok bool, err error) {
 	if im.db == nil {
@@ -327,12 +340,20 @@ func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (p
 			return prior, false, err
 		}
 	}
+	return im.seenAs(ctx, hex.EncodeToString(h.Sum(nil)))
+}
+
+// seenAs looks for a source with that hash among the lot's.
+func (im *importer) seenAs(ctx context.Context, hash string) (prior record.Source, ok bool, err error) {
+	if im.db == nil {
+		return prior, false, nil
+	}
 	err = im.db.View(ctx, func(tx *store.Tx) error {
 		lot, err := tx.Lot(im.rq.Lot)
 		if err != nil {
 			return err
 		}
-		prior, err = tx.SourceByHash(lot.ID, hex.EncodeToString(h.Sum(nil)))
+		prior, err = tx.SourceByHash(lot.ID, hash)
 		return err
 	})
 	if errors.Is(err, store.ErrNotFound) {

@@ -107,6 +107,9 @@ func curveOf(sw *record.Sweep) fit.Curve {
 			over(&c.Vdd, m.Index, sign)
 		}
 	}
+	if n := len(sw.Values(record.Settled)); n > 0 {
+		c.Returned = sw.Values(record.Settled)[n-1] == record.TakenAgain
+	}
 	if c.Vg == nil {
 		c.Vg = nans(sw.Len())
 	}
