@@ -80,7 +80,7 @@ func (j *joiner) log(role string) *Log {
 // of the load, else of the drain.
 func (j *joiner) reference() error {
 	if j.log("gate") == nil {
-		return fmt.Errorf("%w: %w", table.ErrRefused, errNoGate)
+		return fmt.Errorf("%w: no log of the gate meter", table.ErrRefused)
 	}
 	for _, role := range []string{"current", "load", "drain"} {
 		if l := j.log(role); l != nil {
