@@ -107,8 +107,8 @@ func stairs(g *rand.Rand, r, from, to float64) path {
 	}
 }
 
-// simMeter is a meter of the invented bench.
-type simMeter struct {
+// pairMeter is a meter of the invented bench.
+type pairMeter struct {
 	role   string
 	meter  string
 	timing Timing
@@ -119,7 +119,7 @@ type simMeter struct {
 	noise  float64   // counts, standard deviation
 }
 
-func (m simMeter) quantity(vg float64) float64 {
+func (m pairMeter) quantity(vg float64) float64 {
 	switch id := simID(vg); m.role {
 	case Current:
 		return id
@@ -136,32 +136,40 @@ func (m simMeter) quantity(vg float64) float64 {
 }
 
 // handhelds are three handhelds: cycles 300, 400 and 250 ms, 100 ms integration, 50 ms
-// processing, unknown lag ±30 ms each, up to 16 ms of batching, current and load
+// processing, unknown lag within ±30 ms each, up to 16 ms of batching, current and load
 // voltage in automatic ranges.
-func handhelds(g *rand.Rand) []simMeter {
-	make := func(role string, cycle float64, counts float64, digits ...float64) simMeter {
-		return simMeter{role: role, meter: role + " handheld", timing: Timing{Integration: 0.1, Processing: 0.05, LagU: 0.03, Jitter: 0.016},
-			cycle: cycle, lag: 0.03 * (2*g.Float64() - 1), digits: digits, counts: counts, noise: 0.2}
+func handhelds(g *rand.Rand) []pairMeter {
+	make := func(role string, cycle float64, counts float64, digits ...float64) pairMeter {
+		return pairMeter{role: role, meter: role + " handheld", timing: Timing{Integration: 0.1, Processing: 0.05, LagU: 0.03, Jitter: 0.016},
+			cycle: cycle, lag: within(g, 0.03), digits: digits, counts: counts, noise: 0.2}
 	}
-	return []simMeter{make(Gate, 0.3, 4000, 1e-3), make(Current, 0.4, 4000, 1e-6, 1e-5, 1e-4), make(Load, 0.25, 4000, 1e-4, 1e-3)}
+	return []pairMeter{make(Gate, 0.3, 4000, 1e-3), make(Current, 0.4, 4000, 1e-6, 1e-5, 1e-4), make(Load, 0.25, 4000, 1e-4, 1e-3)}
+}
+
+// within draws from ±x, every other time one of the ends.
+func within(g *rand.Rand, x float64) float64 {
+	if g.IntN(2) == 0 {
+		return math.Copysign(x, g.Float64()-0.5)
+	}
+	return x * (2*g.Float64() - 1)
 }
 
 // fast makes a meter one of 20 ms integration and 22 ms cycle, unknown lag ±2 ms.
-func fast(g *rand.Rand, m simMeter) simMeter {
+func fast(g *rand.Rand, m pairMeter) pairMeter {
 	m.meter = m.role + " fast"
 	m.timing = Timing{Integration: 0.02, Processing: 0.002, LagU: 0.002}
-	m.cycle, m.lag, m.noise = 0.022, 0.002*(2*g.Float64()-1), 0.3
+	m.cycle, m.lag, m.noise = 0.022, within(g, 0.002), 0.3
 	return m
 }
 
-func slowGate(g *rand.Rand) []simMeter {
+func slowGate(g *rand.Rand) []pairMeter {
 	m := handhelds(g)[:2]
 	m[0].cycle = 0.4
 	m[1] = fast(g, m[1])
 	return m
 }
 
-func threeFast(g *rand.Rand) []simMeter {
+func threeFast(g *rand.Rand) []pairMeter {
 	m := handhelds(g)
 	for i := range m {
 		m[i] = fast(g, m[i])
@@ -176,12 +184,12 @@ type simulation struct {
 	truth    map[string]map[float64]float64 // instant by role and arrival
 	pairing  Pairing
 	path     path
-	meters   map[string]simMeter
+	meters   map[string]pairMeter
 }
 
 // simulate lets the meters read along the path.
-func simulate(g *rand.Rand, p path, meters []simMeter) *simulation {
-	s := &simulation{truth: map[string]map[float64]float64{}, pairing: Pairing{Timing: map[string]Timing{}, Free: true}, path: p, meters: map[string]simMeter{}}
+func simulate(g *rand.Rand, p path, meters []pairMeter) *simulation {
+	s := &simulation{truth: map[string]map[float64]float64{}, pairing: Pairing{Timing: map[string]Timing{}, Free: true}, path: p, meters: map[string]pairMeter{}}
 	for _, m := range meters {
 		s.truth[m.role] = map[float64]float64{}
 		s.pairing.Timing[m.role] = m.timing
@@ -192,7 +200,7 @@ func simulate(g *rand.Rand, p path, meters []simMeter) *simulation {
 	return s
 }
 
-func (s *simulation) run(g *rand.Rand, m simMeter) {
+func (s *simulation) run(g *rand.Rand, m pairMeter) {
 	scale, lost, lastAt := 0, 0, -1.0
 	for t := m.cycle * g.Float64(); t < s.path.end(); t += m.cycle * (1 + 0.004*(2*g.Float64()-1)) {
 		x := 0.0

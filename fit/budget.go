@@ -18,6 +18,7 @@ const (
 	InGateStep                   // step of the gate display
 	InCurrentNoise               // noise and counts of the current
 	InReading                    // what the curve may be between the points
+	InPairing                    // of gate and current that were not read at one instant
 	InSweeps                     // what several sweeps differ by, or share beside their own scatter
 	InGateOffset                 // counts of the gate meter's statement
 	InCurrentOffset              // counts of the statement of the meter of the current
@@ -202,6 +203,7 @@ var inputInfos = [inputCount]struct{ name, unit, kind, shape string }{
 	InGateStep:      {"gate display step", "V", "B", rectangular},
 	InCurrentNoise:  {"current noise and counts", "%", "B", rectangular},
 	InReading:       {"curve between the points", "V", "B", normal},
+	InPairing:       {"pairing of the meters", "V", "B", rectangular},
 	InSweeps:        {"difference of the sweeps", "", "A", normal},
 	InGateOffset:    {"gate meter offset", "V", "B", rectangular},
 	InCurrentOffset: {"offset", "A", "B", rectangular},

@@ -84,6 +84,13 @@ func budgetSetups(t *testing.T) map[string]func(seed uint64) (Curve, Setup) {
 		s.Burden = 0.1
 		return c, s
 	}
+	all["paired"] = func(seed uint64) (Curve, Setup) {
+		c, s := all["load"](seed)
+		for k := range c.Vg {
+			c.VgBound = append(c.VgBound, 1e-3+1e-4*float64(k%7))
+		}
+		return c, s
+	}
 	all["two spots"] = func(seed uint64) (Curve, Setup) {
 		return Curve{Vg: []float64{3.012, 3.334}, Id: []float64{1e-3, 100e-3}}, stated(simBench{circuit: Diode}.setup())
 	}
@@ -219,4 +226,75 @@ func TestRecordedTemperature(t *testing.T) {
 	// The gate voltage of a p-channel part is negative, and comes nearer to 0.
 	c, s = budgetSetups(t)["p-channel"](5)
 	near(t, "V/K, p-channel", line(s).C, 3.1e-3, 0.5e-3)
+}
+
+// Meters that do not read at one instant: the greater bound of the two points around a crossing,
+// rectangular, is one more input to every gate voltage and to nothing else; a bound that is not there or
+// not known leaves every digit as it was.
+func TestPairing(t *testing.T) {
+	line := func(q Quantity) (u float64) {
+		for _, x := range q.Budget.Lines {
+			if x.Input == InPairing {
+				if u != 0 || x.Shape != rectangular || x.C*x.C != 1 || x.Name == "" {
+					t.Errorf("line %+v", x)
+				}
+				u = x.U
+			}
+		}
+		return u
+	}
+	for _, name := range []string{"load", "diode", "fixed", "fine", "p-channel", "two spots", "coarse steps"} {
+		c, s := budgetSetups(t)[name](3)
+		plain := One(c, s)
+		bounds := func(f func(k int) float64) Result {
+			c := c
+			for k := range c.Vg {
+				c.VgBound = append(c.VgBound, f(k))
+			}
+			return One(c, s)
+		}
+		for what, r := range map[string]Result{
+			"0": bounds(func(int) float64 { return 0 }), "not known": bounds(func(int) float64 { return math.NaN() }),
+		} {
+			for _, k := range Keys {
+				if x, y := fmt.Sprintf("%+v", *r.At(k)), fmt.Sprintf("%+v", *plain.At(k)); !sameButBudget(*r.At(k), *plain.At(k)) {
+					t.Errorf("%s: bound %s: %s %s, without %s", name, what, k, x, y)
+				}
+			}
+		}
+		const bound = 4e-3
+		r := bounds(func(int) float64 { return bound })
+		for _, k := range []Key{KeyVgsth, KeyVgsIdle, KeyVt} {
+			q, p := *r.At(k), *plain.At(k)
+			if !q.Ok() || q.Budget == nil {
+				continue
+			}
+			near(t, name+" "+string(k)+" input", line(q), bound/math.Sqrt(3), 1e-12)
+			near(t, name+" "+string(k)+" value", q.Value, p.Value, 0)
+			near(t, name+" "+string(k)+" U", q.U, math.Hypot(p.U, bound/math.Sqrt(3)), 1e-12)
+			if !math.IsNaN(p.UAbsolute) {
+				near(t, name+" "+string(k)+" U absolute", q.UAbsolute, math.Hypot(p.UAbsolute, bound/math.Sqrt(3)), 1e-12)
+			}
+		}
+		for _, k := range []Key{KeyBeta, KeyGmIdle} {
+			if !sameButBudget(*r.At(k), *plain.At(k)) {
+				t.Errorf("%s: %s follows the pairing: %+v, %+v", name, k, *r.At(k), *plain.At(k))
+			}
+		}
+		// Of the points around the crossing only.
+		far := bounds(func(k int) float64 {
+			if math.Abs(math.Abs(c.Vg[k])-math.Abs(plain.Vgsth.Value)) > 0.4 {
+				return bound
+			}
+			return 0
+		})
+		if far.Vgsth.U != plain.Vgsth.U {
+			t.Errorf("%s: a bound far off counts: %g, %g", name, far.Vgsth.U, plain.Vgsth.U)
+		}
+	}
+}
+
+func sameButBudget(a, b Quantity) bool {
+	a.Budget, b.Budget = nil, nil
+	return fmt.Sprint(a) == fmt.Sprint(b)
 }

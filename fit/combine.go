@@ -392,6 +392,9 @@ func checkHeating(rs []Result, dirs []string) []Warning {
 		return nil
 	}
 	if len(up) == 0 || len(down) == 0 {
+		if slices.ContainsFunc(rs, func(r Result) bool { return r.Returned }) {
+			return nil
+		}
 		return []Warning{{CodeHeatingNotChecked, "Swept in one direction only: heating was not checked."}}
 	}
 	type gap struct{ d, u float64 }

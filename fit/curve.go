@@ -23,6 +23,11 @@ type Curve struct {
 	Vd  []float64 // V, drain to source; nil: not read
 	Vdd []float64 // V, supply; nil: not read point by point
 	Gm  []float64 // S, transconductance given with a spot; nil: none
+
+	Returned bool // the last point is no part of the sweep: it was taken again at low power after it
+	// VgBound is the greatest error of each gate voltage because gate and current were not
+	// read at one instant, V; nil: none, NaN: not known, which counts as none.
+	VgBound []float64
 }
 
 // Accuracy is what is known of one meter on one range:

@@ -119,6 +119,7 @@ func (w *work) stepAt(v float64) float64 {
 func (s Swept) cleaned() (*work, bool) {
 	w := newWork(s.Curve, s.Setup)
 	w.settleCurrents()
+	w.takeReturn()
 	if state, _ := w.dead(); state != "" {
 		return nil, false
 	}

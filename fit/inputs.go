@@ -122,6 +122,32 @@ func (w *work) addCurrent(b *budget, i, gain, offset float64) {
 	}
 }
 
+// addPairing adds what a gate voltage may be off by, V, because the meters did not read at
+// one instant, rectangular. Within a sweep it is much the same for all points (a lag times the rate
+// of the gate), so that it is not averaged over them; it moves the curve and leaves its
+// slope. From one device to the next it is anew, as the rate of a hand is.
+//
+// Checked: TestPairing.
+func (w *work) addPairing(b *budget, bound float64) { b.add(InPairing, bound/math.Sqrt(3), 1) }
+
+// pairing is the bound of that at a point, V; 0 when it is not known.
+func (w *work) pairing(p *point) float64 {
+	if x := math.Abs(at(w.c.VgBound, p.k)); finiteNumber(x) {
+		return x
+	}
+	return 0
+}
+
+// pairingNear is the greater bound of the two points around a crossing, of which j is the
+// first at or above it.
+func (w *work) pairingNear(j int) float64 {
+	bound := 0.0
+	for k := max(0, j-1); k <= j && k < len(w.pts); k++ {
+		bound = math.Max(bound, w.pairing(&w.pts[k]))
+	}
+	return bound
+}
+
 // addKelvin adds the temperature to the budget of a quantity that changes by c per K.
 func (w *work) addKelvin(b *budget, c float64) {
 	_, u := w.warmth()
@@ -146,6 +172,7 @@ func (w *work) crossingQuantity(c crossing, i float64) Quantity {
 	var b budget
 	nu := w.addReading(&b, &c, i)
 	b.raise(w.stepFloor(c.b))
+	w.addPairing(&b, w.pairingNear(c.b))
 	perCurrent := i / c.gm
 	w.addGate(&b, c.v)
 	w.addCurrent(&b, i, perCurrent, 1/c.gm)
@@ -201,6 +228,7 @@ func (w *work) lineQuantity(v, u, others, model float64, b, n int, nu, i, perOff
 	var bud budget
 	bud.add(InScatter, u, 1)
 	bud.raise(w.stepFloor(b))
+	w.addPairing(&bud, w.pairingNear(b))
 	bud.add(InReading, others, 1)
 	bud.add(InModel, model, 1)
 	w.addGate(&bud, v)

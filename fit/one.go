@@ -15,7 +15,9 @@ func One(c Curve, s Setup) Result {
 	w := newWork(c, s)
 	r := NewResult()
 	w.settleCurrents()
+	back, ok := w.takeReturn()
 	w.evaluate(&r)
+	r.Returned = ok && r.State == Measured && w.judgeReturn(back)
 	dropInfinite(&r)
 	r.LeftOut, r.Warnings = w.sortedLeft(), w.warns
 	return r

@@ -102,6 +102,7 @@ type Result struct {
 	Shape     Shape                // of the curve, beside its thresholds
 	ReadTest  ReadOn               // ranges on which the readings behind Vgsth were taken
 	ReadIdle  ReadOn               // the same of VgsIdle
+	Returned  bool                 // a reading taken again after the sweep was compared with it: heating was looked for
 	Crossings int                  // upward crossings of the test current
 	Levels    []Level              // the curve itself: gate voltages at the currents of [LevelCurrents] inside the sweep, ascending by current
 	LeftOut   []LeftOut            // ascending by Index

@@ -168,6 +168,11 @@ func (w *work) spotQuantity(v float64, p *point, i, display, carried float64, n 
 	var b budget
 	b.add(InGateStep, display, 1)
 	b.add(InReading, math.Abs(carried), 1)
+	bound := w.pairing(p)
+	if n == 2 { // between the two
+		bound = w.pairingNear(1)
+	}
+	w.addPairing(&b, bound)
 	perCurrent := w.spotPerCurrent(p, i)
 	w.addGate(&b, v)
 	w.addCurrent(&b, i, perCurrent, perCurrent/i)

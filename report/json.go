@@ -363,3 +363,13 @@ func SortJSON(w io.Writer, s Sheet) error {
 		member{"smallest_honest_width_" + sortUnit(s.Sorting.By), number(s.Sorting.SmallestWidth)},
 		member{"bins", rowsOf(binDocs(s.Sorting))}, member{"unsorted", rowsOf(unsortedDocs(&s))})
 }
+
+// writeLine writes one object of a stream, in one line.
+func writeLine(w io.Writer, value any) error {
+	b := bufio.NewWriter(w)
+	if err := writeCompact(b, value); err != nil {
+		return err
+	}
+	b.WriteByte('\n')
+	return b.Flush()
+}

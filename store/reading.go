@@ -32,9 +32,10 @@ func (tx *Tx) StartSweep(s *record.Sweep) error {
 	return tx.fail("device "+s.DeviceID, err)
 }
 
-// SealSweep gives a started sweep its points, marks and hash, once and for all;
-// the rest of s does not change what was kept. [ErrNotFound] when there is no
-// such sweep, or it is sealed.
+// SealSweep gives a started sweep its points, marks and hash, once and for all,
+// and the direction and the instruments as they turned out; the rest of s does
+// not change what was kept. [ErrNotFound] when there is no such sweep, or it is
+// sealed.
 func (tx *Tx) SealSweep(s *record.Sweep) error {
 	if err := s.Validate(); err != nil {
 		return err
@@ -51,9 +52,13 @@ func (tx *Tx) SealSweep(s *record.Sweep) error {
 	if err != nil {
 		return err
 	}
+	instruments, err := a.instruments.id(tx, s.Instruments)
+	if err != nil {
+		return err
+	}
 	noun := "started sweep " + s.ID
-	result, err := tx.sql.ExecContext(tx.ctx, `UPDATE sweep SET (data_hash, points, source_lines, marks, `+dataColumns+`) = (`+
-		places(len(values))+`) WHERE id = ? AND data_hash IS NULL`, append(values, s.ID)...)
+	result, err := tx.sql.ExecContext(tx.ctx, `UPDATE sweep SET (data_hash, points, source_lines, marks, `+dataColumns+`, direction, instruments_id) = (`+
+		places(len(values)+2)+`) WHERE id = ? AND data_hash IS NULL`, append(values, string(s.Direction), orNull(instruments), s.ID)...)
 	if err != nil {
 		return tx.fail(noun, err)
 	}

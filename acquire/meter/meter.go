@@ -9,6 +9,7 @@ package meter
 
 import (
 	"errors"
+	"fmt"
 
 	"gatesill/store/record"
 )
@@ -26,6 +27,30 @@ type Reading struct {
 
 	AC, DC, Auto                      bool
 	Hold, Relative, Min, Max, LowBatt bool
+	Test                              string // "diode", "continuity": the meter feeds the part itself; "" it measures
+}
+
+// Refusal says in a few words why the reading cannot stand for a quantity in that
+// SI unit, or "" when it can. A reading whose unit was not said is taken to be in
+// the unit wanted, and unit "" takes every unit. A low battery refuses nothing.
+func (r Reading) Refusal(unit string) string {
+	switch {
+	case unit != "" && r.Unit != "" && r.Unit != unit:
+		return "wrong unit: " + r.Unit + ", wanted " + unit
+	case r.Test != "":
+		return r.Test + " test"
+	case r.AC:
+		return "AC"
+	case r.Hold:
+		return "held"
+	case r.Relative:
+		return "relative"
+	case r.Min:
+		return "minimum"
+	case r.Max:
+		return "maximum"
+	}
+	return ""
 }
 
 // Decoder finds frames in a stream of bytes.
@@ -44,6 +69,7 @@ type Options struct {
 	Unit      string // of text columns without a unit, by column joined with commas
 	Separator string // of text columns; "" any of comma, semicolon, tab, blanks
 	Decimal   string // "point" or "comma"; "" point
+	Question  string // what is sent for a reading, so that its echo is dropped; "" nothing is sent
 }
 
 // Format is one way in which meters speak.
@@ -55,5 +81,11 @@ type Format struct {
 	Ask      string // what is sent for a reading; "" it speaks by itself
 	Length   int    // bytes of a frame; 0 varies
 	Twice    bool   // every frame is sent twice per conversion
+	Lines    bool   // frames are lines: questions end with LF, and a line whose beginning was missed looks whole
 	New      func(Options) (Decoder, error)
+}
+
+// bad is an error about a frame; its text is printable whatever the frame held.
+func bad(format string, args ...any) error {
+	return fmt.Errorf("%w: "+format, append([]any{ErrFrame}, args...)...)
 }

@@ -33,6 +33,7 @@ type Error struct {
 type Question struct {
 	Text    string   // one sentence
 	Choices []string // what may be answered, as the flag takes it; empty: anything the flag takes
+	Default string   // what an empty answer means; "" it must be answered
 	Flag    string   // flag that answers it: "--decimal"
 }
 

@@ -28,7 +28,7 @@ var mayImport = map[string][]string{
 	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
 	"report/live":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
 	"cmd/internal/job":  {"store", "acquire", "acquire/", "fit", "fit/", "report", "report/", "store/record"},
-	"cmd/gatesill":      {"cmd/internal/job", "store/record", "acquire/table", "report"},
+	"cmd/gatesill":      {"cmd/internal/job", "store/record", "acquire", "acquire/table", "acquire/keeper", "acquire/rehearsal", "report"},
 }
 
 // onlyImporter names, for each module that one package alone may import, that

@@ -2,6 +2,7 @@ package main
 
 import (
 	"bufio"
+	"cmp"
 	"context"
 	"fmt"
 	"os"
@@ -63,11 +64,12 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.StringVar(&color, "color", "auto", "colour: auto, always or never")
 	p.BoolVarP(&env.Quiet, "quiet", "q", false, "no talk, only results, warnings and errors")
 	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
-	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (no verb does so far)")
+	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (meters --write: write over the file)")
 	root.AddCommand(
-		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
-		reportCmd(env), exportCmd(env), backupCmd(env), versionCmd(env),
+		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
+		reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
+	root.AddCommand(processCmds()...)
 	root.SetHelpCommand(helpCmd(env))
 	root.InitDefaultCompletionCmd()
 	for _, c := range root.Commands() {
@@ -139,6 +141,9 @@ func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error)
 			if len(q.Choices) > 0 {
 				fmt.Fprintf(env.Err, "[%s] ", report.Clean(strings.Join(q.Choices, ", ")))
 			}
+			if q.Default != "" {
+				fmt.Fprintf(env.Err, "(Enter: %s) ", report.Clean(q.Default))
+			}
 			fmt.Fprint(env.Err, "? ")
 			select {
 			case <-ctx.Done():
@@ -149,7 +154,7 @@ func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error)
 				}
 				return "", job.Usage("answer with "+q.Flag, "no answer")
 			case line := <-lines:
-				answer := strings.TrimSpace(line)
+				answer := cmp.Or(strings.TrimSpace(line), q.Default)
 				if slices.Contains(q.Choices, answer) || answer != "" && len(q.Choices) == 0 {
 					return answer, nil
 				}

@@ -6,7 +6,7 @@ ALTER TABLE reading ADD COLUMN digit REAL;                       -- one count of
 ALTER TABLE reading ADD COLUMN refused TEXT NOT NULL DEFAULT ''; -- why it cannot stand for the quantity, '' when it can
 
 ALTER TABLE sweep ADD COLUMN pair_bound_v TEXT; -- greatest error of vg_v from pairing meters that do not read at one instant
-ALTER TABLE sweep ADD COLUMN settled TEXT;      -- 1: a mean while all stood still, 0: interpolated between readings
+ALTER TABLE sweep ADD COLUMN settled TEXT;      -- 1: a mean while all stood still, 0: interpolated between readings, 2: as 1, taken again at low power after the sweep
 
 CREATE TABLE event (
 	session_id TEXT NOT NULL REFERENCES session (id),

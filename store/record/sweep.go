@@ -18,8 +18,12 @@ const (
 	T    Quantity = "t_s"    // elapsed time
 
 	PairBound Quantity = "pair_bound_v" // greatest error of the gate voltage from pairing meters that do not read at one instant
-	Settled   Quantity = "settled"      // 1: a mean while all stood still, 0: interpolated between readings
+	Settled   Quantity = "settled"      // 1: a mean while all stood still, 0: interpolated between readings, 2: as 1, taken again at low power after the sweep
 )
+
+// TakenAgain in column [Settled] marks a point at low power that was taken again
+// after the sweep, to see whether the device had warmed up or was harmed.
+const TakenAgain = 2
 
 // Quantities lists all quantities in their order.
 var Quantities = []Quantity{VG, ID, VL, VD, VDD, IG, GM, Temp, T, PairBound, Settled}

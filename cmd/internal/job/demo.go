@@ -12,6 +12,8 @@ import (
 	"slices"
 	"strings"
 
+	"gatesill/acquire"
+	"gatesill/acquire/rehearsal"
 	"gatesill/acquire/table"
 	"gatesill/fit"
 	"gatesill/report"
@@ -21,8 +23,8 @@ import (
 // demoMark is the file by which the demo knows a folder as its own.
 const demoMark = "made-by-gatesill-demo.txt"
 
-// Demo makes curve files of two invented lots and does the whole job on them:
-// import, fit, spread, sort, report, export. The devices, their faults and the
+// Demo does the whole job on two invented lots: one is measured on a simulated
+// bench, the other imported from files; then spread, sort, report, export. The devices, their faults and the
 // meters are invented; nothing in it was measured.
 //
 // A workshop builds a 30 W beacon amplifier. Lot 'spring' is what the bias
@@ -136,25 +138,9 @@ func (t demoDevice) drain(vg float64) float64 {
 	return min(t.model.Solve(vg, demoVDD, demoRL)+t.leak, demoVDD/demoRL)
 }
 
-// files writes the curve files: one long table with semicolons and decimal
-// commas, and one file per device.
+// files writes the curve files of lot autumn, one per device.
 func (d *demo) files(context.Context) error {
 	d.env.talk("Two invented lots of the invented part GX-30, 15 ohm from 13.8 V; nothing here was measured.")
-	var long strings.Builder
-	long.WriteString("# Steckbrett, 15 Ohm an 13,8 V, 24 °C\nBauteil;U_GS [V];I_D [mA];U_L [V]\n")
-	for _, t := range d.lot("S", 24, 2.92, 0.055) {
-		for _, vg := range d.gates(2.55, 3.75) {
-			id := t.drain(vg)
-			row := []string{t.name, d.meter(vg, 6000, 6), d.meter(id*1e3, 6000, 60, 600, 6000), d.meter(id*demoRL, 6000, 6, 60)}
-			for i := 1; i < len(row); i++ {
-				row[i] = strings.Replace(row[i], ".", ",", 1)
-			}
-			long.WriteString(strings.Join(row, ";") + "\n")
-		}
-	}
-	if err := os.WriteFile(filepath.Join(d.dir, "curves", "spring.csv"), []byte(long.String()), 0o644); err != nil {
-		return err
-	}
 	lot := d.lot("A", 30, 3.01, 0.06)
 	for _, i := range []int{3, 11, 17, 26} { // another die at about the same threshold
 		lot[i].model.Beta *= 0.5
@@ -183,6 +169,24 @@ func (d *demo) files(context.Context) error {
 	return nil
 }
 
+// springFile writes the curves of lot spring as one long table with semicolons and
+// decimal commas.
+func (d *demo) springFile(path string, lot []demoDevice) error {
+	var long strings.Builder
+	long.WriteString("# Steckbrett, 15 Ohm an 13,8 V, 24 °C\nBauteil;U_GS [V];I_D [mA];U_L [V]\n")
+	for _, t := range lot {
+		for _, vg := range d.gates(2.55, 3.75) {
+			id := t.drain(vg)
+			row := []string{t.name, d.meter(vg, 6000, 6), d.meter(id*1e3, 6000, 60, 600, 6000), d.meter(id*demoRL, 6000, 6, 60)}
+			for i := 1; i < len(row); i++ {
+				row[i] = strings.Replace(row[i], ".", ",", 1)
+			}
+			long.WriteString(strings.Join(row, ";") + "\n")
+		}
+	}
+	return os.WriteFile(path, []byte(long.String()), 0o644)
+}
+
 // given are the conditions of the demo's bench, as flags give them.
 func (d *demo) given() table.Options {
 	return table.Options{Given: record.Condition{
@@ -207,9 +211,8 @@ func (d *demo) spring(ctx context.Context) error {
 	if err := LotAdd(ctx, d.env, "spring", LotEdit{Part: &part, TestCurrent: &test, IdleCurrent: &idle, VgsthMin: &lo, VgsthMax: &hi, Supplier: &supplier, Sampled: &sampled}); err != nil {
 		return err
 	}
-	file := filepath.Join(d.dir, "curves", "spring.csv")
-	d.say("import spring %s %s", Quote(file), demoFlags)
-	if err := Import(ctx, d.env, ImportRequest{Lot: "spring", Files: []string{file}, Table: d.given()}); err != nil {
+	lot := d.lot("S", 5, 2.92, 0.055)
+	if err := d.measure(ctx, lot); err != nil {
 		return err
 	}
 	d.say("spread spring")
@@ -217,6 +220,39 @@ func (d *demo) spring(ctx context.Context) error {
 		return err
 	}
 	return d.report(ctx, "spring")
+}
+
+// measure takes lot spring through the simulated bench, in real time; where there
+// are no pseudo-terminals it imports a file instead.
+func (d *demo) measure(ctx context.Context, lot []demoDevice) error {
+	c, err := rehearsal.Standard(rehearsal.Quick)
+	if err != nil {
+		return err
+	}
+	c.RL, c.VDD, c.Devices = demoRL, demoVDD, nil
+	rq := SweepRequest{
+		Lot: "spring", Mode: acquire.Driven, Rehearsal: true, Simulated: &c,
+		From: record.Known(2.55), Step: record.Known(0.05), Given: record.Condition{Temp: record.Known(24), TempOf: "ambient"},
+	}
+	for _, t := range lot {
+		rq.Devices = append(rq.Devices, t.name)
+		c.Devices = append(c.Devices, rehearsal.Device{
+			Name: t.name, Vt: t.model.Vt, Beta: t.model.Beta, N: t.model.N, Theta: t.model.Theta, Lambda: t.model.Lambda,
+			Kappa: 4e-3, Alpha: 1.7, Rth: 1.5, Tau: 20,
+		})
+	}
+	d.say("sweep spring %s --rehearsal --drive --from 2.55 --step 50mV --temp 24C", strings.Join(rq.Devices, " "))
+	err = Sweep(ctx, d.env, rq)
+	if !errors.Is(err, rehearsal.ErrNoTerminals) {
+		return err
+	}
+	file := filepath.Join(d.dir, "curves", "spring.csv")
+	d.env.talk("this system has no pseudo-terminals for a simulated bench: a file instead")
+	if err := d.springFile(file, lot); err != nil {
+		return err
+	}
+	d.say("import spring %s %s", Quote(file), demoFlags)
+	return Import(ctx, d.env, ImportRequest{Lot: "spring", Files: []string{file}, Table: d.given()})
 }
 
 func (d *demo) autumn(ctx context.Context) error {

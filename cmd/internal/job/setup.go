@@ -78,6 +78,7 @@ func curveOf(sw *record.Sweep) fit.Curve {
 	c := fit.Curve{
 		Vg: sw.Values(record.VG), Id: sw.Values(record.ID), Vl: sw.Values(record.VL),
 		Vd: sw.Values(record.VD), Vdd: sw.Values(record.VDD), Gm: sw.Values(record.GM),
+		VgBound: sw.Values(record.PairBound),
 	}
 	over := func(xs *[]float64, i int, sign int) {
 		if i < len(*xs) {
@@ -105,6 +106,9 @@ func curveOf(sw *record.Sweep) fit.Curve {
 		case record.VDD:
 			over(&c.Vdd, m.Index, sign)
 		}
+	}
+	if n := len(sw.Values(record.Settled)); n > 0 {
+		c.Returned = sw.Values(record.Settled)[n-1] == record.TakenAgain
 	}
 	if c.Vg == nil {
 		c.Vg = nans(sw.Len())

@@ -1,0 +1,350 @@
+package job
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"slices"
+	"time"
+
+	"gatesill/acquire"
+	"gatesill/acquire/bench"
+	"gatesill/report"
+	"gatesill/store"
+	"gatesill/store/record"
+)
+
+// resumeWithin is how long after its start a session that was cut short is gone
+// on with, rather than a new one begun.
+const resumeWithin = 18 * time.Hour
+
+// sitting is one session at a bench, as far as the store is concerned: what is
+// measured goes into its lot as it comes in.
+type sitting struct {
+	env     *Env
+	db      *store.DB
+	live    *store.Live
+	bench   *bench.Bench
+	given   record.Condition
+	lot     record.Lot
+	part    record.Part
+	session record.Session
+	started time.Time // of the session, on the monotonic clock
+	next    int       // measuring order of the next sweep
+	meters  shownRanges
+
+	sweep *record.Sweep // being measured; nil: none
+	cut   []cutShort    // sweeps that an earlier program left unfinished
+}
+
+// cutShort is a sweep that a crash or a power cut ended.
+type cutShort struct {
+	device string
+	points int
+}
+
+// sittingRequest is what a sitting is opened for.
+type sittingRequest struct {
+	Lot                        string
+	Bench                      *bench.Bench
+	Given                      record.Condition
+	Operator, Fixture, Session string
+	Ambient                    record.Num
+}
+
+// openSitting opens the store, makes the lot where it is absent, gives what an
+// earlier program left unfinished its points, and begins a session or goes on
+// with the one that was cut short.
+func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, err error) {
+	if err := record.CheckName("lot", rq.Lot); err != nil {
+		return nil, invalid(err)
+	}
+	s = &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
+	if s.db, err = e.open(ctx, true, false); err != nil {
+		return nil, err
+	}
+	defer func() {
+		if err != nil {
+			_ = s.db.Close()
+		}
+	}()
+	now := time.Now()
+	err = s.db.Update(ctx, func(tx *store.Tx) error {
+		if err := s.lotOrNew(tx, rq.Lot); err != nil {
+			return err
+		}
+		benchID, err := tx.AddBench(s.bench.Name, s.bench.Text)
+		if err != nil {
+			return err
+		}
+		if err := s.takeUp(tx, benchID, now); err != nil {
+			return err
+		}
+		if s.session.ID == "" {
+			s.session = record.Session{
+				Name: rq.Session, Bench: s.bench.Name, BenchID: benchID, Operator: rq.Operator, Fixture: rq.Fixture,
+				Ambient: rq.Ambient, StartedAt: record.Stamp(now),
+			}
+			if err := tx.AddSession(&s.session); err != nil {
+				return err
+			}
+			s.started = now
+		}
+		sweeps, err := tx.Sweeps(s.lot.ID, false)
+		for _, sw := range sweeps {
+			s.next = max(s.next, sw.Position)
+		}
+		return err
+	})
+	if err != nil {
+		return nil, storeFailure(err)
+	}
+	s.live = s.db.NewLive(ctx)
+	return s, nil
+}
+
+// lotOrNew finds the lot, or makes it with a part of its own.
+func (s *sitting) lotOrNew(tx *store.Tx, name string) error {
+	lot, err := tx.Lot(name)
+	if err == nil {
+		s.lot = lot
+		s.part, err = tx.PartByID(lot.PartID)
+		return err
+	}
+	if !errors.Is(err, store.ErrNotFound) {
+		return err
+	}
+	s.part = record.NewPart(unnamedPart(name))
+	if p, err := tx.Part(s.part.Name); err == nil {
+		s.part = p
+	} else if err := tx.PutPart(&s.part, "sweep"); err != nil {
+		return invalid(err)
+	}
+	s.lot = record.Lot{Name: name, PartID: s.part.ID, CreatedAt: record.Now()}
+	return invalid(tx.PutLot(&s.lot, "sweep"))
+}
+
+// takeUp gives the sweeps of the lot that were never finished the points that
+// their readings make, sets them aside, and goes on with the session of the last
+// one when it was on the same bench, not long ago.
+func (s *sitting) takeUp(tx *store.Tx, benchID string, now time.Time) error {
+	open, err := tx.StartedSweeps()
+	if err != nil {
+		return err
+	}
+	for i := range open {
+		sw := &open[i]
+		if sw.LotID != s.lot.ID {
+			continue
+		}
+		points, err := s.recover(tx, sw)
+		if err != nil {
+			return err
+		}
+		device, err := tx.DeviceByID(sw.DeviceID)
+		if err != nil {
+			return err
+		}
+		s.cut = append(s.cut, cutShort{device.Name, points})
+		if sw.SessionID == "" {
+			continue
+		}
+		session, err := tx.Session(sw.SessionID)
+		if err != nil {
+			return err
+		}
+		began, err := time.Parse(time.RFC3339Nano, session.StartedAt)
+		if err == nil && session.BenchID == benchID && now.Sub(began) < resumeWithin && now.After(began) {
+			s.session, s.started = session, now.Add(-now.Sub(began))
+			if err := tx.AddEvents([]record.Event{{SessionID: session.ID, SweepID: sw.ID, At: now.Sub(began).Seconds(), Kind: "resumed", Text: device.Name}}); err != nil {
+				return err
+			}
+		}
+	}
+	return nil
+}
+
+// recover seals a sweep with what its readings give, and sets it aside: it is not
+// whole. Without any point it is given up; its readings stay.
+func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
+	readings, err := tx.Readings(sw.ID)
+	if err != nil {
+		return 0, err
+	}
+	b := s.bench
+	if sw.SessionID != "" {
+		if session, err := tx.Session(sw.SessionID); err == nil && session.BenchID != "" {
+			if _, text, err := tx.Bench(session.BenchID); err == nil {
+				if old, err := bench.Parse([]byte(text)); err == nil {
+					b = old
+				}
+			}
+		}
+	}
+	points, _ := acquire.Pair(readings, acquire.Pairing{Timing: Timings(b)})
+	why := "cut short: the program ended while it was measured"
+	if len(points) > 0 {
+		sw.Columns, sw.Marks = acquire.Columns(points)
+		if err := tx.SealSweep(sw); err != nil {
+			return 0, err
+		}
+	}
+	return len(points), tx.ExcludeSweep(sw.ID, true, why)
+}
+
+// elapsed is the time in the session, s.
+func (s *sitting) elapsed() float64 { return time.Since(s.started).Seconds() }
+
+// begin starts the sweep of a device, which is added to the lot when it is new.
+func (s *sitting) begin(ctx context.Context, device string, direction record.Direction) error {
+	if err := record.CheckName("device", device); err != nil {
+		return invalid(err)
+	}
+	sw := &record.Sweep{
+		LotID: s.lot.ID, SessionID: s.session.ID, Position: s.next + 1, Direction: direction, MeasuredAt: record.Now(),
+		Condition: s.given, Instruments: s.instruments(),
+	}
+	err := s.db.Update(ctx, func(tx *store.Tx) error {
+		d, err := tx.Device(s.lot.ID, device)
+		if errors.Is(err, store.ErrNotFound) {
+			ds := []record.Device{{LotID: s.lot.ID, Name: device, Role: record.Sample, CreatedAt: record.Now()}}
+			if err = tx.AddDevices(s.lot.ID, ds); err == nil {
+				d = ds[0]
+			}
+		}
+		if err != nil {
+			return err
+		}
+		sw.DeviceID = d.ID
+		return tx.StartSweep(sw)
+	})
+	if err != nil {
+		return storeFailure(invalid(err))
+	}
+	s.next++
+	s.sweep = sw
+	return nil
+}
+
+// hear keeps the readings of an event, in a sweep; what the meters showed is
+// noted in any case.
+func (s *sitting) hear(e acquire.Event) error {
+	for i := range e.Readings {
+		r := e.Readings[i]
+		s.meters.note(r)
+		if s.sweep == nil {
+			continue
+		}
+		r.SweepID = s.sweep.ID
+		if err := s.live.Add(r); err != nil {
+			return storeFailure(err)
+		}
+	}
+	return nil
+}
+
+// event keeps what happened besides readings.
+func (s *sitting) event(kind, format string, args ...any) error {
+	e := record.Event{SessionID: s.session.ID, At: s.elapsed(), Kind: kind, Text: fmt.Sprintf(format, args...)}
+	if s.sweep != nil {
+		e.SweepID = s.sweep.ID
+	}
+	return storeFailure(s.live.AddEvent(e))
+}
+
+// finish seals the sweep with its points; why is given when it is to be set
+// aside; returned says that the last point was taken again at low power after the
+// sweep. Without points it is given up. It returns the sweep as it is kept.
+func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned bool, direction record.Direction, why string) (record.Sweep, error) {
+	sw := s.sweep
+	if err := s.live.Flush(); err != nil {
+		return *sw, storeFailure(err)
+	}
+	s.sweep = nil
+	sw.Direction, sw.Instruments = direction, s.instruments()
+	sw.Columns, sw.Marks = acquire.Columns(points)
+	if c := sw.Column(record.Settled); c != nil && returned {
+		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
+	}
+	err := s.db.Update(ctx, func(tx *store.Tx) error {
+		if len(points) > 0 {
+			if err := tx.SealSweep(sw); err != nil {
+				return err
+			}
+		} else if why == "" {
+			why = "no point was taken"
+		}
+		if why == "" {
+			return nil
+		}
+		sw.Excluded, sw.Why = true, why
+		return tx.ExcludeSweep(sw.ID, true, why)
+	})
+	return *sw, storeFailure(err)
+}
+
+// close ends the sitting. A sweep that is still open stays so, to be taken up.
+func (s *sitting) close() error {
+	return storeFailure(errors.Join(s.live.Close(), s.db.Close()))
+}
+
+// instruments are those of the bench file. A meter without ranges gets what it
+// was seen to show, without an accuracy statement.
+func (s *sitting) instruments() []record.Instrument {
+	out := slices.Clone(s.bench.Meters)
+	for i := range out {
+		if len(out[i].Ranges) == 0 {
+			out[i].Ranges = s.meters.ranges(out[i].Role)
+		}
+	}
+	return out
+}
+
+// shownRanges is what the meters showed so far: by role and step of the display
+// the greatest reading.
+type shownRanges map[string]map[float64]float64
+
+func (m shownRanges) note(r record.Reading) {
+	digit, ok := r.Digit.Get()
+	x, number := r.Value.Get()
+	if !ok || !number || digit <= 0 || r.Refused != "" {
+		return
+	}
+	if m[r.Role] == nil {
+		m[r.Role] = map[float64]float64{}
+	}
+	m[r.Role][digit] = math.Max(m[r.Role][digit], math.Abs(x))
+}
+
+// ranges lists them ascending, as ranges of an instrument of which only the step
+// of the display is known.
+func (m shownRanges) ranges(role string) []record.RangeAccuracy {
+	var digits []float64
+	for d := range m[role] {
+		digits = append(digits, d)
+	}
+	slices.Sort(digits)
+	var out []record.RangeAccuracy
+	for i, d := range digits {
+		top := m[role][d]
+		if i == len(digits)-1 {
+			top = math.MaxFloat64
+		}
+		if n := len(out); n > 0 && top <= out[n-1].Top {
+			continue
+		}
+		out = append(out, record.RangeAccuracy{Top: top, Resolution: d})
+	}
+	return out
+}
+
+// tellCut says what an earlier program left unfinished, and gives the devices.
+func (s *sitting) tellCut() []string {
+	var names []string
+	for _, c := range s.cut {
+		names = append(names, c.device)
+		s.env.talk("device %s: its sweep was cut short after %s; these are kept, set aside, and it is measured again", report.Clean(c.device), count(c.points, "point"))
+	}
+	return names
+}

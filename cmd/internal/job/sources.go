@@ -1,0 +1,71 @@
+package job
+
+import (
+	"strings"
+
+	"gatesill/acquire"
+	"gatesill/acquire/bench"
+	"gatesill/acquire/meter"
+)
+
+// Sources are the lines of a bench as they are listened to: meters on one line are
+// the columns of one source. Meters without a line are left out.
+func Sources(b *bench.Bench) []acquire.Source {
+	var out []acquire.Source
+	at := map[string]int{} // source of each line
+	for i, l := range b.Lines {
+		if l.Path == "" {
+			continue
+		}
+		k, known := at[l.Path]
+		if !known {
+			k = len(out)
+			at[l.Path] = k
+			out = append(out, acquire.Source{
+				Address: l.Path, Settings: l.Settings, Speaks: l.Speaks, Setup: l.Setup, Ask: l.Ask, Every: l.Every.Or(0),
+				Options: meter.Options{Unit: columnUnits(b, l.Path), Separator: l.Separator, Decimal: l.Decimal},
+			})
+		}
+		in := b.Meters[i]
+		out[k].Columns = append(out[k].Columns, acquire.SourceColumn{Column: l.Column, Role: in.Role, Meter: in.Name, Unit: bench.RoleUnit(in.Role)})
+	}
+	return out
+}
+
+// columnUnits joins the units that the file gives to the columns of a line; "" when
+// it gives none.
+func columnUnits(b *bench.Bench, path string) string {
+	var units []string
+	for _, l := range b.Lines {
+		if l.Path != path || l.Unit == "" {
+			continue
+		}
+		for len(units) < l.Column {
+			units = append(units, "")
+		}
+		units[l.Column-1] = l.Unit
+	}
+	return strings.Join(units, ",")
+}
+
+// Timings are what the bench file says of when its meters measure, by role. A meter
+// of which it says nothing has the zero [acquire.Timing], but for how long a USB
+// adapter holds bytes back: that is taken for the worst that is usual.
+func Timings(b *bench.Bench) map[string]acquire.Timing {
+	out := map[string]acquire.Timing{}
+	for i, in := range b.Meters {
+		l := b.Lines[i]
+		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Or(0)}
+		for _, lead := range []string{"/dev/serial/", "/dev/ttyUSB", "COM"} {
+			if strings.HasPrefix(l.Path, lead) {
+				t.Jitter = adapterHold
+			}
+		}
+		out[in.Role] = t
+	}
+	return out
+}
+
+// adapterHold is how long USB serial adapters hold back bytes of a short message:
+// 16 ms is the usual setting of their timer. Common practice, no source.
+const adapterHold = 0.016

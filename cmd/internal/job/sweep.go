@@ -1,0 +1,324 @@
+package job
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"math"
+	"path/filepath"
+	"slices"
+	"strings"
+	"time"
+
+	"gatesill/acquire"
+	"gatesill/acquire/bench"
+	"gatesill/acquire/rehearsal"
+	"gatesill/fit"
+	"gatesill/report"
+	"gatesill/report/screen"
+	"gatesill/store/record"
+)
+
+// SweepRequest is what the sweep verb was asked to do.
+type SweepRequest struct {
+	Lot     string
+	Devices []string
+	Bench   string // bench file
+	Mode    acquire.Mode
+
+	From, To, Step, At record.Num // V, V, V, A
+	Settle             record.Num // s; unknown: until it stands still
+
+	Rehearsal  bool
+	Simulated  *rehearsal.Config // the simulated bench; nil: the standard one for the mode
+	Given      record.Condition
+	SkipChecks string // why the bench is not checked first; "": it is
+
+	Operator, Fixture, Session string
+
+	Keyboard func() (keys <-chan rune, restore func(), err error) // nil, or no keys: no terminal
+	Size     func() (width, height int)
+	Raw      io.Writer // the terminal while the keyboard is in use
+}
+
+// sweeper leads a session: checks, then one device after the other.
+type sweeper struct {
+	*sitting
+	rq      SweepRequest
+	roles   []string
+	limits  acquire.Limits
+	timing  map[string]acquire.Timing
+	events  chan acquire.Event
+	keys    <-chan rune
+	picture *screen.Live
+	last    map[string]heardLast
+
+	restoreKeys func()
+	sim         *rehearsed
+	drive       *driver // of the device in the fixture; nil: none
+	lock        *acquire.Interlock
+	scale       map[string]float64
+	swap        map[string]string // roles whose lines are exchanged
+	lines       []string          // what was said, newest first
+	beeps       int
+	control     bool
+	trouble     error // that ended a device
+	doc         report.SweepDoc
+}
+
+// errQuit ends the session at the operator's wish.
+var errQuit = errors.New("session ended by the operator")
+
+// Sweep measures devices of a lot with the meters of a bench.
+func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
+	w := &sweeper{rq: rq, events: make(chan acquire.Event, 4096), last: map[string]heardLast{}, scale: map[string]float64{}, swap: map[string]string{}}
+	b, err := w.findBench(ctx, env)
+	if err != nil {
+		return err
+	}
+	defer func() { err = errors.Join(err, w.sim.close()) }()
+	given := merge(rq.Given, b.Given)
+	if w.sitting, err = env.openSitting(ctx, sittingRequest{
+		Lot: rq.Lot, Bench: b, Given: given, Operator: rq.Operator, Fixture: rq.Fixture, Session: rq.Session, Ambient: ambient(given),
+	}); err != nil {
+		return err
+	}
+	defer func() {
+		if cerr := w.sitting.close(); err == nil {
+			err = cerr
+		}
+	}()
+	if err := w.prepare(); err != nil {
+		return err
+	}
+	if err := w.terminal(); err != nil {
+		return err
+	}
+	ctx, stop := context.WithCancel(ctx)
+	heard := make(chan error, 1)
+	go func() {
+		heard <- acquire.Listen(ctx, Sources(b), w.started, func(e acquire.Event) {
+			select {
+			case w.events <- e:
+			case <-ctx.Done():
+			}
+		})
+	}()
+	err = w.work(ctx)
+	stop()
+	<-heard
+	restored := w.restore()
+	if errors.Is(err, errQuit) {
+		err = nil
+	}
+	if terr := w.conclude(); err == nil {
+		err = terr
+	}
+	return errors.Join(err, restored)
+}
+
+// findBench reads the bench file, or starts the simulated bench.
+func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error) {
+	rq := &w.rq
+	if !rq.Rehearsal {
+		b, err := readBench(rq.Bench)
+		if err != nil {
+			return nil, err
+		}
+		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
+			env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
+		}
+		for _, text := range b.Cautions() {
+			env.warn("%s", report.Clean(text))
+		}
+		return b, nil
+	}
+	c := rq.Simulated
+	if c == nil {
+		kind := rehearsal.Handheld
+		if rq.Mode == acquire.Driven {
+			kind = rehearsal.Quick
+		}
+		standard, err := rehearsal.Standard(kind)
+		if err != nil {
+			return nil, err
+		}
+		c = &standard
+	}
+	var names []string
+	for _, d := range c.Devices {
+		names = append(names, d.Name)
+	}
+	if len(rq.Devices) == 0 {
+		rq.Devices = names
+	}
+	// Whatever the devices are called, the simulated ones sit in the fixture in turn.
+	simulated := *c
+	simulated.Devices = nil
+	for i, name := range rq.Devices {
+		if len(c.Devices) == 0 {
+			break
+		}
+		d := c.Devices[i%len(c.Devices)]
+		if k := slices.Index(names, name); k >= 0 {
+			d = c.Devices[k]
+		}
+		d.Name = name
+		simulated.Devices = append(simulated.Devices, d)
+	}
+	var err error
+	if w.sim, err = rehearse(ctx, simulated); err != nil {
+		return nil, err
+	}
+	env.talk("rehearsal: everything on this bench is simulated; nothing it says was measured")
+	return w.sim.bench, nil
+}
+
+// ambient is the temperature of the room, where it was given.
+func ambient(c record.Condition) record.Num {
+	if c.TempOf == "ambient" || c.TempOf == "" {
+		return c.Temp
+	}
+	return record.Num{}
+}
+
+// prepare settles what the session needs before a line is opened.
+func (w *sweeper) prepare() error {
+	w.timing = Timings(w.bench)
+	for _, m := range w.bench.Meters {
+		w.roles = append(w.roles, m.Role)
+	}
+	l := w.bench.Limits
+	least := func(part, bench record.Num) float64 {
+		x, y := part.Or(math.Inf(1)), bench.Or(math.Inf(1))
+		if m := math.Min(math.Abs(x), math.Abs(y)); !math.IsInf(m, 1) {
+			return m
+		}
+		return 0
+	}
+	w.limits = acquire.Limits{
+		Vgs: least(w.part.MaxVgs, l.Vgs), Vds: least(w.part.MaxVds, l.Vds), ID: least(w.part.MaxID, l.ID),
+		PD: least(w.part.MaxPD, l.PD), Temp: l.Temp.Or(0),
+	}
+	plan := w.plan()
+	if _, err := acquire.NewRunner(plan); err != nil {
+		return &Failure{Code: ExitFailed, Err: err, Hint: "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"}
+	}
+	w.lock = acquire.NewInterlock(plan)
+	if again := w.tellCut(); len(again) > 0 {
+		w.rq.Devices = slices.DeleteFunc(w.rq.Devices, func(d string) bool { return slices.Contains(again, d) })
+		w.rq.Devices = append(again, w.rq.Devices...)
+	}
+	return nil
+}
+
+// plan is the plan of a sweep with what is known now.
+func (w *sweeper) plan() acquire.Plan {
+	rq := &w.rq
+	overloads := map[string]int{}
+	for _, m := range w.bench.Meters {
+		if len(m.Ranges) > 1 { // it may show one when it changes its range
+			overloads[m.Role] = 2
+		}
+	}
+	gate := slices.ContainsFunc(w.bench.Supplies, func(s bench.Supply) bool { return s.Drives == "gate" })
+	drain := slices.ContainsFunc(w.bench.Supplies, func(s bench.Supply) bool { return s.Drives == "drain" })
+	driven := rq.Mode == acquire.Driven || rq.Mode == acquire.AtSpot && gate
+	at := rq.At
+	if !at.IsKnown() && w.given.Circuit != record.Diode {
+		at = w.part.TestCurrent
+	}
+	p := acquire.Plan{
+		Mode: rq.Mode, From: rq.From, To: rq.To, Step: rq.Step, Idle: w.part.IdleCurrent, Settle: rq.Settle,
+		Channel: w.part.Channel, PartMode: w.part.Mode, OffVoltage: record.Known(offVoltage(w.part)), Limits: w.limits, Overloads: overloads, Circuit: w.given,
+		DrivesGate: driven && gate, DrivesDrain: driven && drain, Roles: w.roles, Scale: w.scale,
+		Pairs: func() acquire.Pairs { return acquire.NewPairer(w.pairing()) },
+	}
+	if rq.Mode == acquire.AtSpot {
+		p.At = at
+	}
+	return p
+}
+
+func (w *sweeper) pairing() acquire.Pairing {
+	p := acquire.Pairing{Timing: w.timing, Free: w.rq.Mode == acquire.Free}
+	if w.rq.Mode == acquire.Driven {
+		p.Window = drivenWindow
+	}
+	return p
+}
+
+// drivenWindow is how long all must have stood still for a settled point where a
+// supply sets the gate, s: there is no hand that trembles, and the pairing asks for
+// enough conversions of every meter besides.
+const drivenWindow = 0.15
+
+// terminal takes keyboard and screen, where there are any.
+func (w *sweeper) terminal() error {
+	var keys <-chan rune
+	restore := func() {}
+	if w.rq.Keyboard != nil && !w.env.Yes {
+		var err error
+		if keys, restore, err = w.rq.Keyboard(); err != nil {
+			return failed("", "keyboard: %w", err)
+		}
+	}
+	w.keys = keys
+	if keys == nil {
+		w.picture = screen.NewLive(io.Discard, nil, false) // what is said goes to stderr line by line
+		w.restoreKeys = restore
+		if w.sim == nil && (w.rq.SkipChecks == "" || len(w.rq.Devices) != 1) {
+			return Usage("--rehearsal needs nobody; so does one DEVICE that sits in the fixture already, with --skip-checks REASON",
+				"sweep: stdin is no terminal, and somebody must change the devices")
+		}
+		return nil
+	}
+	w.restoreKeys = restore
+	w.picture = screen.NewLive(w.rq.Raw, w.rq.Size, w.env.Color)
+	return nil
+}
+
+// restore gives the terminal back and says once more what was said last.
+func (w *sweeper) restore() error {
+	err := w.picture.Close()
+	w.restoreKeys()
+	if w.keys != nil {
+		for i := min(len(w.lines), 5) - 1; i >= 0; i-- {
+			w.env.talk("%s", report.Clean(w.lines[i]))
+		}
+	}
+	return err
+}
+
+// conclude shows what the session brought.
+func (w *sweeper) conclude() error {
+	w.doc.Lot, w.doc.Session = w.lot.Name, w.sitting.session.ID
+	var err error
+	if w.env.JSON {
+		err = report.SweepJSON(w.env.Out, w.doc)
+	} else if len(w.doc.Devices) > 0 {
+		err = report.SweepTable(w.env.Out, w.doc, w.env.style())
+	}
+	if err == nil && w.trouble != nil {
+		return &Failure{Code: ExitInstrument, Err: w.trouble, Hint: "gatesill meters --bench " + Quote(first(w.rq.Bench, "FILE")) + " shows what each meter says"}
+	}
+	return err
+}
+
+// say tells the operator something, on the screen or as a line.
+func (w *sweeper) say(format string, args ...any) {
+	text := fmt.Sprintf(format, args...)
+	if len(w.lines) > 0 && w.lines[0] == text {
+		return
+	}
+	w.lines = append([]string{text}, w.lines[:min(len(w.lines), 50)]...)
+	if w.keys == nil {
+		w.env.talk("  %s", report.Clean(text))
+	}
+}
+
+// supplyLog is where the keeper writes what it did, beside the store.
+func (w *sweeper) supplyLog() string {
+	return strings.TrimSuffix(w.db.Path(), filepath.Ext(w.db.Path())) + ".supplies.log"
+}
