@@ -263,10 +263,7 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned b
 	}
 	s.sweep = nil
 	sw.Direction, sw.Instruments = direction, s.instruments()
-	sw.Columns, sw.Marks = acquire.Columns(points)
-	if c := sw.Column(record.Settled); c != nil && returned {
-		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
-	}
+	fillSweep(sw, points, returned)
 	err := s.db.Update(ctx, func(tx *store.Tx) error {
 		if len(points) > 0 {
 			if err := tx.SealSweep(sw); err != nil {
@@ -282,6 +279,15 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned b
 		return tx.ExcludeSweep(sw.ID, true, why)
 	})
 	return *sw, storeFailure(err)
+}
+
+// fillSweep makes points the columns of a sweep; returned says that the last one was
+// taken again.
+func fillSweep(sw *record.Sweep, points []acquire.Point, returned bool) {
+	sw.Columns, sw.Marks = acquire.Columns(points)
+	if c := sw.Column(record.Settled); c != nil && returned {
+		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
+	}
 }
 
 // close ends the sitting. A sweep that is still open stays so, to be taken up.
