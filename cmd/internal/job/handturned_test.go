@@ -257,15 +257,7 @@ func TestHandTurned(t *testing.T) {
 func TestKnobFollowed(t *testing.T) {
 	t.Parallel()
 	v := judgeSessions(t, simCase{mode: acquire.Free, kind: rehearsal.Handheld,
-		pairing: func(p *acquire.Pairing) { p.Tolerance = 10e-3 }, // the bound alone keeps points out at 5 mV
-		rate: func(s *simBench) func(acquire.Hand) float64 {
-			return func(h acquire.Hand) float64 {
-				if h.Creep {
-					return 10e-3
-				}
-				return handRate
-			}
-		}}, 1)
+		pairing: func(p *acquire.Pairing) { p.Tolerance = 10e-3 }}, 1) // the bound alone keeps points out at 5 mV
 	v[0].hold(t, "V_GS(th)")
 	v[1].hold(t, "V_GS at 250 mA")
 }

@@ -31,9 +31,10 @@ type simBench struct {
 	queue []rehearsal.Sent
 	heard []acquire.Event // not yet handed on
 
-	aim    float64                          // V, of the hand; NaN none
-	rate   func(h acquire.Hand) (v float64) // V/s of the hand
-	orders []string                         // that the supplies were given
+	aim     float64                          // V, of the hand; NaN none
+	turning float64                          // V/s
+	rate    func(h acquire.Hand) (v float64) // V/s of the hand
+	orders  []string                         // that the supplies were given
 }
 
 // simLine is the far end of a line for its handler.
@@ -74,12 +75,7 @@ func newSimBench(t *testing.T, c rehearsal.Config, mode acquire.Mode, test, idle
 	}
 	require.NoError(t, w.prepare())
 	s := &simBench{t: t, b: b, w: w, lines: map[string]*simLine{}, start: time.Unix(0, 0), aim: math.NaN(),
-		rate: func(h acquire.Hand) float64 {
-			if h.Creep {
-				return creepRate
-			}
-			return handRate
-		}}
+		rate: func(h acquire.Hand) float64 { return h.Rate }}
 	for _, src := range Sources(file) {
 		src.Setup = nil // a conversation that waits in real time
 		settings, err := port.ParseSettings(src.Settings)
@@ -192,10 +188,10 @@ func (s *simBench) turn(h acquire.Hand) {
 		require.NoError(s.t, s.b.Knob(s.b.Truth().Vg, 0))
 		return
 	}
-	if h.To == s.aim {
+	if h.To == s.aim && h.Rate == s.turning {
 		return
 	}
-	s.aim = h.To
+	s.aim, s.turning = h.To, h.Rate
 	require.NoError(s.t, s.b.Knob(h.To, rate))
 }
 

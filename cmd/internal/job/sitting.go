@@ -182,7 +182,7 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 			}
 		}
 	}
-	points, _ := acquire.Pair(readings, acquire.Pairing{Timing: Timings(b)})
+	points, _ := acquire.Pair(readings, pairingOf(b))
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
 		sw.Columns, sw.Marks = acquire.Columns(points)

@@ -48,7 +48,6 @@ type sweeper struct {
 	rq      SweepRequest
 	roles   []string
 	limits  acquire.Limits
-	timing  map[string]acquire.Timing
 	events  chan acquire.Event
 	keys    <-chan rune
 	picture *screen.Live
@@ -185,7 +184,6 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
-	w.timing = Timings(w.bench)
 	for _, m := range w.bench.Meters {
 		w.roles = append(w.roles, m.Role)
 	}
@@ -242,7 +240,8 @@ func (w *sweeper) plan() acquire.Plan {
 }
 
 func (w *sweeper) pairing() acquire.Pairing {
-	p := acquire.Pairing{Timing: w.timing, Free: w.rq.Mode == acquire.Free}
+	p := pairingOf(w.bench)
+	p.Free = w.rq.Mode == acquire.Free
 	if w.rq.Mode == acquire.Driven {
 		p.Window = drivenWindow
 	}

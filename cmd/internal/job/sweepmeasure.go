@@ -332,7 +332,7 @@ func (m *measuring) tick(at float64) {
 	m.obey(m.r.Tick(at))
 	if m.w.sim != nil && !m.drives {
 		h := m.r.Hand()
-		m.w.handAt(h.To, h.Creep)
+		m.w.handAt(h.To, h.Rate)
 	}
 }
 
