@@ -10,6 +10,7 @@ import (
 
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
+	"gatesill/acquire/rehearsal"
 	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
@@ -74,6 +75,9 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, e
 		if err := s.lotOrNew(tx, rq.Lot); err != nil {
 			return err
 		}
+		if err := s.unmixed(tx); err != nil {
+			return err
+		}
 		benchID, err := tx.AddBench(s.bench.Name, s.bench.Text)
 		if err != nil {
 			return err
@@ -123,6 +127,28 @@ func (s *sitting) lotOrNew(tx *store.Tx, name string) error {
 	}
 	s.lot = record.Lot{Name: name, PartID: s.part.ID, CreatedAt: record.Now()}
 	return invalid(tx.PutLot(&s.lot, "sweep"))
+}
+
+// unmixed refuses to put invented sweeps and measured ones into one lot.
+func (s *sitting) unmixed(tx *store.Tx) error {
+	sweeps, err := tx.Sweeps(s.lot.ID, false)
+	if err != nil || len(sweeps) == 0 {
+		return err
+	}
+	sessions, err := tx.Sessions(s.lot.ID)
+	if err != nil {
+		return err
+	}
+	invented := map[string]bool{}
+	for _, x := range sessions {
+		invented[x.ID] = x.Bench == rehearsal.BenchName
+	}
+	for _, sw := range sweeps {
+		if invented[sw.SessionID] != (s.bench.Name == rehearsal.BenchName) {
+			return failed("name another lot, or another store with --store", "lot %q: measured sweeps and those of a rehearsal do not go into one lot", s.lot.Name)
+		}
+	}
+	return nil
 }
 
 // takeUp gives the sweeps of the lot that were never finished the points that

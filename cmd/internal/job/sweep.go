@@ -77,6 +77,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 		return err
 	}
 	defer func() { err = errors.Join(err, w.sim.close()) }()
+	if err := w.storeApart(env); err != nil {
+		return err
+	}
 	given := merge(rq.Given, b.Given)
 	if w.sitting, err = env.openSitting(ctx, sittingRequest{
 		Lot: rq.Lot, Bench: b, Given: given, Operator: rq.Operator, Fixture: rq.Fixture, Session: rq.Session, Ambient: ambient(given),
@@ -172,6 +175,21 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 	}
 	env.talk("rehearsal: everything on this bench is simulated; nothing it says was measured")
 	return w.sim.bench, nil
+}
+
+// storeApart keeps what a rehearsal invents out of the store in which a person's
+// own lots are, unless a store was named.
+func (w *sweeper) storeApart(env *Env) error {
+	if !w.rq.Rehearsal || env.Store != "" {
+		return nil
+	}
+	path, err := env.path()
+	if err != nil {
+		return err
+	}
+	env.Store = filepath.Join(filepath.Dir(path), "rehearsal.db")
+	env.talk("kept apart from your own lots, in %s; see it with gatesill --store %s spread %s", report.Clean(env.Store), report.Clean(Quote(env.Store)), report.Clean(Quote(w.rq.Lot)))
+	return nil
 }
 
 // ambient is the temperature of the room, where it was given.
