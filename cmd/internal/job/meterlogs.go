@@ -198,14 +198,25 @@ func (im *importer) socket() replay.Socket {
 	return k
 }
 
-// pairing says how the meters of the set are brought together: their clocks were
-// held against each other with all their delays, so only what remains open counts.
+// pairing says how the meters of the set are brought together. Clocks that were held
+// against each other by the readings were so with all delays of the meters, so only
+// what remains open counts; where an offset was assumed, what the bench file says of
+// the delays is taken, against that of the meter the others are held against.
 func (im *importer) pairing(s *replay.Session) acquire.Pairing {
 	p := acquire.Pairing{Timing: map[string]acquire.Timing{}, Free: true}
+	known := map[string]acquire.Timing{}
+	if im.bench != nil {
+		known = Timings(im.bench)
+	}
 	for _, l := range s.Logs {
 		t := acquire.Timing{}
 		if c := l.Found.Clock; c != nil {
 			t.LagU = c.Bound
+			if own, ok := known[l.Role]; ok && c.Assumed {
+				ref := known[c.Against]
+				t.Lag = ref.Instant(0) - own.Instant(0)
+				t.LagU += own.LagU + ref.LagU
+			}
 		}
 		p.Timing[l.Role] = t
 	}
