@@ -57,19 +57,16 @@ type sittingRequest struct {
 // openSitting opens the store, makes the lot where it is absent, gives what an
 // earlier program left unfinished its points, and begins a session or goes on
 // with the one that was cut short.
-func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, err error) {
+func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (*sitting, error) {
 	if err := record.CheckName("lot", rq.Lot); err != nil {
 		return nil, invalid(err)
 	}
-	s = &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
-	if s.db, err = e.open(ctx, true, false); err != nil {
+	s := &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
+	db, err := e.open(ctx, true, false)
+	if err != nil {
 		return nil, err
 	}
-	defer func() {
-		if err != nil {
-			_ = s.db.Close()
-		}
-	}()
+	s.db = db
 	now := time.Now()
 	err = s.db.Update(ctx, func(tx *store.Tx) error {
 		if err := s.lotOrNew(tx, rq.Lot); err != nil {
@@ -102,7 +99,8 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, e
 		return err
 	})
 	if err != nil {
-		return nil, storeFailure(err)
+		_, cerr := db.RemoveIfEmpty(ctx)
+		return nil, storeFailure(errors.Join(err, cerr))
 	}
 	s.live = s.db.NewLive(ctx)
 	return s, nil
