@@ -1,36 +1,13 @@
 package acquire
 
 import (
-	"encoding/csv"
 	"math"
-	"os"
 	"strconv"
 	"strings"
 	"testing"
 
 	"gatesill/store/record"
 )
-
-// settleCurve reads testdata/scenarios/s5_settle.csv: invented data of a part that
-// warms up, once a second; it ends at 3.3591 V.
-func settleCurve(t *testing.T) (ts, vs []float64) {
-	t.Helper()
-	f, err := os.Open("../testdata/scenarios/s5_settle.csv")
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil || len(rows) != 302 {
-		t.Fatalf("%d rows, %v", len(rows), err)
-	}
-	for _, r := range rows[1:] {
-		at, _ := strconv.ParseFloat(r[0], 64)
-		v, _ := strconv.ParseFloat(r[1], 64)
-		ts, vs = append(ts, at), append(vs, v)
-	}
-	return ts, vs
-}
 
 // jig is the one-resistor jig with one voltmeter: the circuit sets the current.
 func jig(settle record.Num) Plan {
@@ -87,7 +64,7 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 // Scenario 5: the rule of 0.5 mV per 10 s over 30 s accepts at 147 s, at 3.362 V; the end
 // extrapolated from the first 60 s is 3.3606 V, from 90 s 3.3589 V.
 func TestSettlingOfScenario5(t *testing.T) {
-	ts, vs := settleCurve(t)
+	ts, vs := warmUp(t)
 	at60, at90 := new(View), new(View)
 	k, at := play(t, jig(record.Num{}), ts, vs, map[float64]*View{60: at60, 90: at90})
 	t.Logf("accepted at %.1f s: %.4f V; end from 60 s %.4f ± %.4f V, from 90 s %.4f ± %.4f V", at, k.Point.Vg, at60.End.Value, at60.End.U, at90.End.Value, at90.End.U)
@@ -115,7 +92,7 @@ func TestSettlingOfScenario5(t *testing.T) {
 // The same wait for every part: 10 s gives 3.402 V, 30 s 3.386 V (scenario 5); the
 // plateau is looked for after that.
 func TestFixedWaitOfScenario5(t *testing.T) {
-	ts, vs := settleCurve(t)
+	ts, vs := warmUp(t)
 	for _, c := range []struct{ wait, want float64 }{{10, 3.402}, {30, 3.386}} {
 		k, at := play(t, jig(record.Known(c.wait)), ts, vs, nil)
 		// At one reading a second the means are of the 5 s to 9 s after the wait.
@@ -207,5 +184,29 @@ func TestSpotThatIsNotReached(t *testing.T) {
 	s := newSim(t, p, testDevice()).start().run(200)
 	if s.done == nil || s.done.Complete || !strings.Contains(s.done.Why, "gate voltage") || len(s.taken) != 0 {
 		t.Errorf("%+v, %d points", s.done, len(s.taken))
+	}
+}
+
+// A display that is too coarse for the rule is told as the wait begins, and not where the
+// wait is fixed.
+func TestSpotOnACoarseDisplay(t *testing.T) {
+	for _, c := range []struct {
+		digit float64
+		wait  record.Num
+		want  bool
+	}{{0.01, record.Num{}, true}, {0.01, record.Known(20), false}, {0.001, record.Num{}, false}} {
+		p := testPlan(AtSpot)
+		p.At, p.AtWithin, p.Settle = record.Known(0.1), 0.1, c.wait
+		s := newSim(t, p, testDevice())
+		s.meter(Gate).digit, s.meter(Gate).noise = c.digit, 0
+		s.rate = 0.02
+		s.start()
+		for s.r.phase != phSoak && s.now < 300 {
+			s.step()
+		}
+		got := strings.Contains(strings.Join(s.r.View(s.now).Warnings, "\n"), "one count of the gate meter")
+		if s.r.phase != phSoak || got != c.want {
+			t.Errorf("a count of %g V, wait %v: phase %d, warned %v", c.digit, c.wait, s.r.phase, got)
+		}
 	}
 }
