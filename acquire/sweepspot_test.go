@@ -21,6 +21,11 @@ func jig(settle record.Num) Plan {
 	return p
 }
 
+// gateSays is a reading of the gate meter.
+func gateSays(at, v, digit float64) Event {
+	return Event{At: at, Role: Gate, Readings: []record.Reading{{Role: Gate, Meter: "m", At: at, Value: record.Known(v), Digit: record.Known(digit), Raw: []byte(strconv.FormatFloat(v, 'f', 3, 64))}}}
+}
+
 // play hands a curve to a spot at one reading a second, after some at zero, and
 // gives the point, when it came, and what the view showed at some times.
 func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken, float64) {
@@ -28,9 +33,6 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 	r, err := NewRunner(p)
 	if err != nil {
 		t.Fatal(err)
-	}
-	reading := func(at, v float64) Event {
-		return Event{At: at, Role: Gate, Readings: []record.Reading{{Role: Gate, Meter: "m", At: at, Value: record.Known(v), Digit: record.Known(0.001), Raw: []byte(strconv.FormatFloat(v, 'f', 3, 64))}}}
 	}
 	const before = 5
 	var got *Taken
@@ -43,10 +45,10 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 		}
 	}
 	for i := range before {
-		look(r.Event(reading(float64(i), 0)))
+		look(r.Event(gateSays(float64(i), 0, 0.001)))
 	}
 	for i, x := range ts {
-		look(r.Event(reading(x+before, vs[i])))
+		look(r.Event(gateSays(x+before, vs[i], 0.001)))
 		for k := 1; k < 5; k++ {
 			look(r.Tick(x + before + 0.2*float64(k)))
 		}
@@ -195,18 +197,20 @@ func TestSpotOnACoarseDisplay(t *testing.T) {
 		wait  record.Num
 		want  bool
 	}{{0.01, record.Num{}, true}, {0.01, record.Known(20), false}, {0.001, record.Num{}, false}} {
-		p := testPlan(AtSpot)
-		p.At, p.AtWithin, p.Settle = record.Known(0.1), 0.1, c.wait
-		s := newSim(t, p, testDevice())
-		s.meter(Gate).digit, s.meter(Gate).noise = c.digit, 0
-		s.rate = 0.02
-		s.start()
-		for s.r.phase != phSoak && s.now < 300 {
-			s.step()
+		r, err := NewRunner(jig(c.wait))
+		if err != nil {
+			t.Fatal(err)
 		}
-		got := strings.Contains(strings.Join(s.r.View(s.now).Warnings, "\n"), "one count of the gate meter")
-		if s.r.phase != phSoak || got != c.want {
-			t.Errorf("a count of %g V, wait %v: phase %d, warned %v", c.digit, c.wait, s.r.phase, got)
+		for i := range 10 {
+			v := 0.0
+			if i >= 5 {
+				v = 3.4
+			}
+			r.Event(gateSays(float64(i), v, c.digit))
+		}
+		got := strings.Contains(strings.Join(r.View(10).Warnings, "\n"), "one count of the gate meter")
+		if r.phase != phSoak || got != c.want {
+			t.Errorf("a count of %g V, wait %v: phase %d, warned %v", c.digit, c.wait, r.phase, got)
 		}
 	}
 }
