@@ -91,6 +91,7 @@ func near(t *testing.T, what string, got, want, tolerance float64) {
 // The end value of a drift that is one exponential is within twice what is stated in 95 of 100 runs;
 // of one with a second, slower one, it is declined when that shows.
 func TestSettleAhead(t *testing.T) {
+	t.Parallel()
 	n := 20
 	if os.Getenv("GATESILL_LONG") != "" {
 		n = 1000

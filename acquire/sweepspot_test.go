@@ -107,6 +107,7 @@ func TestFixedWaitOfScenario5(t *testing.T) {
 // A spot at a current: by hand and driven, of every kind of part, while the part
 // warms up.
 func TestSpotAtACurrent(t *testing.T) {
+	t.Parallel()
 	for _, drives := range []bool{false, true} {
 		for i, k := range kinds {
 			if !drives && (i == 1 || i == 2) {
