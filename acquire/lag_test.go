@@ -31,6 +31,7 @@ func lagRun(t *testing.T, seed uint64, r float64, meters func(*rand.Rand) []pair
 // A lag of up to 300 ms between two meters is found to within 20 ms or 0.15 mV of gate
 // voltage, and the stated uncertainty is honest.
 func TestFindLag(t *testing.T) {
+	t.Parallel()
 	n := uint64(2)
 	if os.Getenv("GATESILL_LONG") != "" {
 		n = 60

@@ -59,6 +59,7 @@ var motions = []struct {
 // paired or not. A hand that turns 1 to 50 mV/s with a tremor of ±45 %, on a ramp and in
 // steps; the tolerance is 10 mV here so that the bounds are tried where they are large.
 func TestBoundsHold(t *testing.T) {
+	t.Parallel()
 	t.Logf("of Id > 20 uA, mV: p95, greatest, number, greatest share of what is allowed; over: refused at 10 mV; fine: of the paired ones, under the bound of 5 mV")
 	for _, b := range benches {
 		t.Run(b.name, func(t *testing.T) {

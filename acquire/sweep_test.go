@@ -71,6 +71,7 @@ func (s *sim) complete(within float64) {
 }
 
 func TestSweepsOfEveryKind(t *testing.T) {
+	t.Parallel()
 	for _, m := range []Mode{Driven, ByHand} {
 		for _, k := range kinds {
 			t.Run(string(m)+" "+k.name, func(t *testing.T) {
@@ -209,6 +210,7 @@ func TestFixedWait(t *testing.T) {
 }
 
 func TestFreeSweep(t *testing.T) {
+	t.Parallel()
 	for _, k := range kinds {
 		p := testPlan(Free)
 		p.Channel, p.PartMode, p.OffVoltage = k.channel, k.mode, record.Known(k.off)

@@ -27,6 +27,7 @@ func begun(t *testing.T, p Plan) *sim {
 // What goes wrong in a driven sweep brings the device to its off state, in time and
 // with the reason.
 func TestFaultsOfADrivenSweep(t *testing.T) {
+	t.Parallel()
 	for _, c := range []struct {
 		name   string
 		fault  func(s *sim)

@@ -1,30 +1,22 @@
 package acquire
 
 import (
+	"fmt"
 	"math"
-
-	"gatesill/store/record"
 )
 
 // noAhead is an end value that cannot be told.
 var noAhead = Ahead{Value: math.NaN(), U: math.NaN(), Tau: math.NaN()}
-
-// bucket is the time, s, over which gate readings are kept as one.
-const bucket = 0.25
 
 // soak is how a spot settles.
 type soak struct {
 	series *Settling
 	heard  float64 // s, of the last gate reading in it
 	latest *Point  // the last plateau
-	slope  float64 // V/s, as of [Settle]; NaN not known
 	end    Ahead
 	endAt  float64
 	in     int // readings in a row near the current, on the way there
 	told   bool
-
-	n                 int // readings of the bucket that is being filled
-	began, sumT, sumV float64
 }
 
 // bring begins the way to the current of a spot.
@@ -165,13 +157,20 @@ func (r *Runner) trim(di float64) float64 {
 // settle begins the wait at the current.
 func (r *Runner) settle() {
 	r.enter(phSoak)
-	r.soak = soak{heard: r.ears.of(Gate).at, slope: math.NaN(), end: noAhead,
-		series: Settle{Digit: record.Known(r.ears.of(Gate).digit).Or(0)}.Start()}
+	gate := r.ears.of(Gate)
+	rule := Settle{After: r.plan.Settle}
+	if gate.digit > 0 {
+		rule.Digit = gate.digit
+	}
+	r.soak = soak{series: rule.Start(r.now), heard: gate.at, end: noAhead}
 	r.ripe, r.arrivedAt = false, r.now
 	r.fresh()
 	if !r.plan.driven() {
 		r.say("%s", r.instruction())
 		r.sound(SoundAttention)
+	}
+	if r.soak.series.Blind() {
+		r.warn(fmt.Sprintf("one count of the gate meter, %s, is more than the drift that counts as settled: that it stands still says little, a fixed wait says more", show(gate.digit, "V")))
 	}
 }
 
@@ -191,17 +190,7 @@ func (r *Runner) soaking(points []Point) {
 			// What the current is off by is in the gate voltage too.
 			u -= math.Max(-0.02, math.Min(0.02, (id-at)/g))
 		}
-		if r.ears.period(Gate) >= bucket {
-			s.series.Add(v.at, u)
-		} else {
-			s.add(v.at, u)
-		}
-		s.slope = math.NaN()
-		if len(s.series.t) > 1 {
-			if x, ok := s.series.slope(); ok {
-				s.slope = x
-			}
-		}
+		s.series.Add(v.at, u)
 		if v.at >= s.endAt+1 {
 			s.endAt, s.end = v.at, noAhead
 			if a, ok := s.series.Ahead(); ok && a.U < 0.010 {
@@ -220,7 +209,7 @@ func (r *Runner) soaking(points []Point) {
 		return
 	}
 	if !r.plan.Settle.IsKnown() {
-		r.ripe = math.Abs(s.slope) <= settleSlope
+		r.ripe = s.series.Settled(r.now)
 	}
 	if s.latest == nil || !r.ripe && !r.wanted || !r.all() {
 		return
@@ -277,17 +266,4 @@ func (r *Runner) retrim(id, at float64) bool {
 	s.latest = nil
 	r.setGate(r.target + d)
 	return true
-}
-
-// add takes a reading into the series: as a mean with others within a bucket of
-// time, so that fast meters do not make it long.
-func (s *soak) add(t, v float64) {
-	if s.n > 0 && t-s.began >= bucket {
-		s.series.Add(s.sumT/float64(s.n), s.sumV/float64(s.n))
-		s.n, s.sumT, s.sumV = 0, 0, 0
-	}
-	if s.n == 0 {
-		s.began = t
-	}
-	s.n, s.sumT, s.sumV = s.n+1, s.sumT+t, s.sumV+v
 }

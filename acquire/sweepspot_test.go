@@ -1,36 +1,13 @@
 package acquire
 
 import (
-	"encoding/csv"
 	"math"
-	"os"
 	"strconv"
 	"strings"
 	"testing"
 
 	"gatesill/store/record"
 )
-
-// settleCurve reads testdata/scenarios/s5_settle.csv: invented data of a part that
-// warms up, once a second; it ends at 3.3591 V.
-func settleCurve(t *testing.T) (ts, vs []float64) {
-	t.Helper()
-	f, err := os.Open("../testdata/scenarios/s5_settle.csv")
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil || len(rows) != 302 {
-		t.Fatalf("%d rows, %v", len(rows), err)
-	}
-	for _, r := range rows[1:] {
-		at, _ := strconv.ParseFloat(r[0], 64)
-		v, _ := strconv.ParseFloat(r[1], 64)
-		ts, vs = append(ts, at), append(vs, v)
-	}
-	return ts, vs
-}
 
 // jig is the one-resistor jig with one voltmeter: the circuit sets the current.
 func jig(settle record.Num) Plan {
@@ -44,6 +21,11 @@ func jig(settle record.Num) Plan {
 	return p
 }
 
+// gateSays is a reading of the gate meter.
+func gateSays(at, v, digit float64) Event {
+	return Event{At: at, Role: Gate, Readings: []record.Reading{{Role: Gate, Meter: "m", At: at, Value: record.Known(v), Digit: record.Known(digit), Raw: []byte(strconv.FormatFloat(v, 'f', 3, 64))}}}
+}
+
 // play hands a curve to a spot at one reading a second, after some at zero, and
 // gives the point, when it came, and what the view showed at some times.
 func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken, float64) {
@@ -51,9 +33,6 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 	r, err := NewRunner(p)
 	if err != nil {
 		t.Fatal(err)
-	}
-	reading := func(at, v float64) Event {
-		return Event{At: at, Role: Gate, Readings: []record.Reading{{Role: Gate, Meter: "m", At: at, Value: record.Known(v), Digit: record.Known(0.001), Raw: []byte(strconv.FormatFloat(v, 'f', 3, 64))}}}
 	}
 	const before = 5
 	var got *Taken
@@ -66,10 +45,10 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 		}
 	}
 	for i := range before {
-		look(r.Event(reading(float64(i), 0)))
+		look(r.Event(gateSays(float64(i), 0, 0.001)))
 	}
 	for i, x := range ts {
-		look(r.Event(reading(x+before, vs[i])))
+		look(r.Event(gateSays(x+before, vs[i], 0.001)))
 		for k := 1; k < 5; k++ {
 			look(r.Tick(x + before + 0.2*float64(k)))
 		}
@@ -87,7 +66,7 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 // Scenario 5: the rule of 0.5 mV per 10 s over 30 s accepts at 147 s, at 3.362 V; the end
 // extrapolated from the first 60 s is 3.3606 V, from 90 s 3.3589 V.
 func TestSettlingOfScenario5(t *testing.T) {
-	ts, vs := settleCurve(t)
+	ts, vs := warmUp(t)
 	at60, at90 := new(View), new(View)
 	k, at := play(t, jig(record.Num{}), ts, vs, map[float64]*View{60: at60, 90: at90})
 	t.Logf("accepted at %.1f s: %.4f V; end from 60 s %.4f ± %.4f V, from 90 s %.4f ± %.4f V", at, k.Point.Vg, at60.End.Value, at60.End.U, at90.End.Value, at90.End.U)
@@ -115,7 +94,7 @@ func TestSettlingOfScenario5(t *testing.T) {
 // The same wait for every part: 10 s gives 3.402 V, 30 s 3.386 V (scenario 5); the
 // plateau is looked for after that.
 func TestFixedWaitOfScenario5(t *testing.T) {
-	ts, vs := settleCurve(t)
+	ts, vs := warmUp(t)
 	for _, c := range []struct{ wait, want float64 }{{10, 3.402}, {30, 3.386}} {
 		k, at := play(t, jig(record.Known(c.wait)), ts, vs, nil)
 		// At one reading a second the means are of the 5 s to 9 s after the wait.
@@ -128,6 +107,7 @@ func TestFixedWaitOfScenario5(t *testing.T) {
 // A spot at a current: by hand and driven, of every kind of part, while the part
 // warms up.
 func TestSpotAtACurrent(t *testing.T) {
+	t.Parallel()
 	for _, drives := range []bool{false, true} {
 		for i, k := range kinds {
 			if !drives && (i == 1 || i == 2) {
@@ -207,5 +187,31 @@ func TestSpotThatIsNotReached(t *testing.T) {
 	s := newSim(t, p, testDevice()).start().run(200)
 	if s.done == nil || s.done.Complete || !strings.Contains(s.done.Why, "gate voltage") || len(s.taken) != 0 {
 		t.Errorf("%+v, %d points", s.done, len(s.taken))
+	}
+}
+
+// A display that is too coarse for the rule is told as the wait begins, and not where the
+// wait is fixed.
+func TestSpotOnACoarseDisplay(t *testing.T) {
+	for _, c := range []struct {
+		digit float64
+		wait  record.Num
+		want  bool
+	}{{0.01, record.Num{}, true}, {0.01, record.Known(20), false}, {0.001, record.Num{}, false}} {
+		r, err := NewRunner(jig(c.wait))
+		if err != nil {
+			t.Fatal(err)
+		}
+		for i := range 10 {
+			v := 0.0
+			if i >= 5 {
+				v = 3.4
+			}
+			r.Event(gateSays(float64(i), v, c.digit))
+		}
+		got := strings.Contains(strings.Join(r.View(10).Warnings, "\n"), "one count of the gate meter")
+		if r.phase != phSoak || got != c.want {
+			t.Errorf("a count of %g V, wait %v: phase %d, warned %v", c.digit, c.wait, r.phase, got)
+		}
 	}
 }

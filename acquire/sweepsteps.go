@@ -86,13 +86,14 @@ func (r *Runner) ripen() {
 		return
 	}
 	since := r.arrivedAt
-	switch {
-	case r.phase == phSoak:
-		since = r.phaseAt // from reaching the current, for every part alike
-	case r.plan.driven() && !math.IsNaN(since):
+	if r.plan.driven() && !math.IsNaN(since) {
 		since = r.setAt // the moment is known better than by its meter
 	}
-	if r.now-since >= settle { // false while it has not arrived
+	over := r.now-since >= settle // false while it has not arrived
+	if r.phase == phSoak {
+		over = r.soak.series.Settled(r.now) // from reaching the current, for every part alike
+	}
+	if over {
 		r.ripe, r.soak.latest = true, nil
 		r.fresh()
 	}

@@ -87,7 +87,7 @@ func (r *Runner) View(at float64) View {
 			v.Waiting = math.Max(0, s-(now-since))
 		}
 	case phSoak:
-		v.End, v.Slope = r.soak.end, r.soak.slope*r.sign
+		v.End, v.Slope = r.soak.end, r.soak.series.Slope()*r.sign
 		if s, ok := r.plan.Settle.Get(); ok {
 			v.Waiting = math.Max(0, s-(now-r.phaseAt))
 		}
