@@ -106,6 +106,29 @@ func TestSweepFromTheOffVoltage(t *testing.T) {
 	}
 }
 
+// Fast and slow meters, quiet and noisy ones; parts that are steep, and parts that
+// are flat.
+func TestSweepsOnOtherBenches(t *testing.T) {
+	for _, m := range []Mode{Driven, ByHand} {
+		for _, x := range []struct{ pace, noise, beta, idle float64 }{
+			{0.1, 0.3, 1.9, 0.25}, {2, 0.3, 1.9, 0.25}, {1, 2, 1.9, 0.25}, {1, 0.3, 30, 0.3}, {1, 0.3, 0.1, 0.05},
+		} {
+			p := testPlan(m)
+			p.From, p.Idle = record.Known(2.6), record.Known(x.idle)
+			d := testDevice()
+			d.beta = x.beta
+			s := newSim(t, p, d)
+			for _, k := range s.meters {
+				k.cycle *= x.pace
+				k.noise = x.noise
+			}
+			s.start().run(600)
+			t.Logf("%s, %+v", m, x)
+			s.complete(0.0015 + 0.0005*x.noise)
+		}
+	}
+}
+
 // A grid that is given is kept, however little current there is.
 func TestGivenSteps(t *testing.T) {
 	for _, m := range []Mode{Driven, ByHand} {

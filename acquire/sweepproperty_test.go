@@ -54,6 +54,11 @@ func TestWhateverHappens(t *testing.T) {
 		d.n = rapid.Float64Range(1, 2).Draw(rt, "n")
 		s := newSim(t, p, d)
 		s.fail = func(format string, a ...any) { rt.Fatalf(format, a...) }
+		noise := rapid.SampledFrom([]float64{0.3, 1, 4}).Draw(rt, "noise")
+		pace := rapid.SampledFrom([]float64{1, 0.1, 2}).Draw(rt, "pace")
+		for _, x := range s.meters {
+			x.noise, x.cycle = noise, x.cycle*pace
+		}
 		s.start()
 		healthy := true
 		for range rapid.IntRange(0, 4).Draw(rt, "happenings") {

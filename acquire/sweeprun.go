@@ -30,7 +30,7 @@ const (
 	approach  = 0.25 // V, greatest step on the way to where the sweep begins
 	endTime   = 5.0  // s for the current to go at the end of a driven sweep
 	offTime   = 10.0 // s for the gate to reach its off voltage at the beginning
-	ohmic     = 0.85 // of the greatest current of the circuit: the device is fully on
+	ohmic     = 0.8  // of the greatest current of the circuit: the device is fully on
 	beyond    = 1.3  // times the idle current: far enough for a fit on both sides of it
 )
 

@@ -367,7 +367,9 @@ func (r *Runner) follow(points []Point) {
 			r.turn(why, true)
 			return
 		}
-	} else if r.seen && now > top+0.1 && r.now > r.slowAt+5 {
+	} else if r.slowAt == 0 && r.idNow() >= r.floor() {
+		r.slowAt = r.now - 2 // not at once
+	} else if r.slowAt > 0 && now > top+0.1 && r.now > r.slowAt+5 {
 		r.slowAt = r.now
 		r.say("turn slower: nothing can be taken at this rate")
 		r.sound(SoundAttention)

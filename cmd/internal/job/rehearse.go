@@ -22,14 +22,12 @@ type rehearsed struct {
 	bench    *bench.Bench
 	folder   string
 	inserted string
-	aim      float64 // V, where the hand turns the knob; NaN: it has not been asked yet
+	aim      float64 // V, where the hand turns the knob; NaN: it stands still
+	rate     float64 // V/s
 }
 
-// handRate is how fast the simulated hand turns the knob, V/s.
-const handRate = 0.25
-
-// creepRate is how fast it goes with an eye on the current, V/s.
-const creepRate = 0.08
+// handRate is how fast the simulated hand turns the knob outside of a sweep, V/s.
+const handRate = 0.5
 
 // rehearse starts a simulated bench.
 func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
@@ -73,27 +71,19 @@ func (r *rehearsed) insert(device string) error {
 	return r.Insert(device)
 }
 
-// turn sends the simulated hand to a gate voltage, slowly where the current must
-// be watched; NaN lets it stop where it is.
-func (r *rehearsed) turn(v float64, creep bool) error {
+// turn sends the simulated hand to a gate voltage at a rate, V/s; NaN lets it stop
+// where it is.
+func (r *rehearsed) turn(v, rate float64) error {
+	if v == r.aim && rate == r.rate || math.IsNaN(v) && math.IsNaN(r.aim) {
+		return nil
+	}
+	r.aim, r.rate = v, rate
 	if math.IsNaN(v) {
-		if math.IsNaN(r.aim) {
-			return nil
-		}
-		r.aim = v
 		t, err := r.Truth()
 		if err != nil {
 			return err
 		}
 		return r.Knob(t.Vg, 0)
-	}
-	if v == r.aim {
-		return nil
-	}
-	r.aim = v
-	rate := handRate
-	if creep {
-		rate = creepRate
 	}
 	return r.Knob(v, rate)
 }

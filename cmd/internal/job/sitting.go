@@ -10,6 +10,7 @@ import (
 
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
+	"gatesill/acquire/rehearsal"
 	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
@@ -56,22 +57,22 @@ type sittingRequest struct {
 // openSitting opens the store, makes the lot where it is absent, gives what an
 // earlier program left unfinished its points, and begins a session or goes on
 // with the one that was cut short.
-func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, err error) {
+func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (*sitting, error) {
 	if err := record.CheckName("lot", rq.Lot); err != nil {
 		return nil, invalid(err)
 	}
-	s = &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
-	if s.db, err = e.open(ctx, true, false); err != nil {
+	s := &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
+	db, err := e.open(ctx, true, false)
+	if err != nil {
 		return nil, err
 	}
-	defer func() {
-		if err != nil {
-			_ = s.db.Close()
-		}
-	}()
+	s.db = db
 	now := time.Now()
 	err = s.db.Update(ctx, func(tx *store.Tx) error {
 		if err := s.lotOrNew(tx, rq.Lot); err != nil {
+			return err
+		}
+		if err := s.unmixed(tx); err != nil {
 			return err
 		}
 		benchID, err := tx.AddBench(s.bench.Name, s.bench.Text)
@@ -98,7 +99,8 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, e
 		return err
 	})
 	if err != nil {
-		return nil, storeFailure(err)
+		_, cerr := db.RemoveIfEmpty(ctx)
+		return nil, storeFailure(errors.Join(err, cerr))
 	}
 	s.live = s.db.NewLive(ctx)
 	return s, nil
@@ -123,6 +125,28 @@ func (s *sitting) lotOrNew(tx *store.Tx, name string) error {
 	}
 	s.lot = record.Lot{Name: name, PartID: s.part.ID, CreatedAt: record.Now()}
 	return invalid(tx.PutLot(&s.lot, "sweep"))
+}
+
+// unmixed refuses to put invented sweeps and measured ones into one lot.
+func (s *sitting) unmixed(tx *store.Tx) error {
+	sweeps, err := tx.Sweeps(s.lot.ID, false)
+	if err != nil || len(sweeps) == 0 {
+		return err
+	}
+	sessions, err := tx.Sessions(s.lot.ID)
+	if err != nil {
+		return err
+	}
+	invented := map[string]bool{}
+	for _, x := range sessions {
+		invented[x.ID] = x.Bench == rehearsal.BenchName
+	}
+	for _, sw := range sweeps {
+		if invented[sw.SessionID] != (s.bench.Name == rehearsal.BenchName) {
+			return failed("name another lot, or another store with --store", "lot %q: measured sweeps and those of a rehearsal do not go into one lot", s.lot.Name)
+		}
+	}
+	return nil
 }
 
 // takeUp gives the sweeps of the lot that were never finished the points that
@@ -182,7 +206,7 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 			}
 		}
 	}
-	points, _ := acquire.Pair(readings, acquire.Pairing{Timing: Timings(b)})
+	points, _ := acquire.Pair(readings, pairingOf(b))
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
 		sw.Columns, sw.Marks = acquire.Columns(points)
@@ -263,10 +287,7 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned b
 	}
 	s.sweep = nil
 	sw.Direction, sw.Instruments = direction, s.instruments()
-	sw.Columns, sw.Marks = acquire.Columns(points)
-	if c := sw.Column(record.Settled); c != nil && returned {
-		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
-	}
+	fillSweep(sw, points, returned)
 	err := s.db.Update(ctx, func(tx *store.Tx) error {
 		if len(points) > 0 {
 			if err := tx.SealSweep(sw); err != nil {
@@ -282,6 +303,15 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned b
 		return tx.ExcludeSweep(sw.ID, true, why)
 	})
 	return *sw, storeFailure(err)
+}
+
+// fillSweep makes points the columns of a sweep; returned says that the last one was
+// taken again.
+func fillSweep(sw *record.Sweep, points []acquire.Point, returned bool) {
+	sw.Columns, sw.Marks = acquire.Columns(points)
+	if c := sw.Column(record.Settled); c != nil && returned {
+		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
+	}
 }
 
 // close ends the sitting. A sweep that is still open stays so, to be taken up.

@@ -55,7 +55,7 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 	out := map[string]acquire.Timing{}
 	for i, in := range b.Meters {
 		l := b.Lines[i]
-		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Or(0)}
+		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Float()}
 		for _, lead := range []string{"/dev/serial/", "/dev/ttyUSB", "COM"} {
 			if strings.HasPrefix(l.Path, lead) {
 				t.Jitter = adapterHold
@@ -69,3 +69,13 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 // adapterHold is how long USB serial adapters hold back bytes of a short message:
 // 16 ms is the usual setting of their timer. Common practice, no source.
 const adapterHold = 0.016
+
+// pairingOf says how the readings of a bench's meters are brought together.
+func pairingOf(b *bench.Bench) acquire.Pairing {
+	p := acquire.Pairing{Timing: Timings(b), Twice: map[string]bool{}}
+	for i, m := range b.Meters {
+		f, ok := meter.Find(b.Lines[i].Speaks)
+		p.Twice[m.Role] = ok && f.Twice
+	}
+	return p
+}

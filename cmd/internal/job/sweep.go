@@ -48,7 +48,6 @@ type sweeper struct {
 	rq      SweepRequest
 	roles   []string
 	limits  acquire.Limits
-	timing  map[string]acquire.Timing
 	events  chan acquire.Event
 	keys    <-chan rune
 	picture *screen.Live
@@ -78,6 +77,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 		return err
 	}
 	defer func() { err = errors.Join(err, w.sim.close()) }()
+	if err := w.storeApart(env); err != nil {
+		return err
+	}
 	given := merge(rq.Given, b.Given)
 	if w.sitting, err = env.openSitting(ctx, sittingRequest{
 		Lot: rq.Lot, Bench: b, Given: given, Operator: rq.Operator, Fixture: rq.Fixture, Session: rq.Session, Ambient: ambient(given),
@@ -175,6 +177,21 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 	return w.sim.bench, nil
 }
 
+// storeApart keeps what a rehearsal invents out of the store in which a person's
+// own lots are, unless a store was named.
+func (w *sweeper) storeApart(env *Env) error {
+	if !w.rq.Rehearsal || env.Store != "" {
+		return nil
+	}
+	path, err := env.path()
+	if err != nil {
+		return err
+	}
+	env.Store = filepath.Join(filepath.Dir(path), "rehearsal.db")
+	env.talk("kept apart from your own lots, in %s; see it with gatesill --store %s spread %s", report.Clean(env.Store), report.Clean(Quote(env.Store)), report.Clean(Quote(w.rq.Lot)))
+	return nil
+}
+
 // ambient is the temperature of the room, where it was given.
 func ambient(c record.Condition) record.Num {
 	if c.TempOf == "ambient" || c.TempOf == "" {
@@ -185,7 +202,6 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
-	w.timing = Timings(w.bench)
 	for _, m := range w.bench.Meters {
 		w.roles = append(w.roles, m.Role)
 	}
@@ -242,7 +258,8 @@ func (w *sweeper) plan() acquire.Plan {
 }
 
 func (w *sweeper) pairing() acquire.Pairing {
-	p := acquire.Pairing{Timing: w.timing, Free: w.rq.Mode == acquire.Free}
+	p := pairingOf(w.bench)
+	p.Free = w.rq.Mode == acquire.Free
 	if w.rq.Mode == acquire.Driven {
 		p.Window = drivenWindow
 	}

@@ -332,7 +332,7 @@ func (m *measuring) tick(at float64) {
 	m.obey(m.r.Tick(at))
 	if m.w.sim != nil && !m.drives {
 		h := m.r.Hand()
-		m.w.handAt(h.To, h.Creep)
+		m.w.handAt(h.To, h.Rate)
 	}
 }
 
@@ -443,13 +443,19 @@ func (w *sweeper) result(ctx context.Context, device string, sw *record.Sweep) f
 		r.State, r.Why = fit.Declined, "no point was taken"
 		return r
 	}
+	s := w.sheetOf(device, sw)
+	r := fit.One(curveOf(sw), setupOf(&s, sw, lastDigitsOf(&s)))
+	r.Choose("auto")
+	return r
+}
+
+// sheetOf is a sheet with that one sweep.
+func (w *sweeper) sheetOf(device string, sw *record.Sweep) report.Sheet {
 	s := report.Sheet{Lot: w.lot, Part: w.part, Devices: []report.Device{{
 		Device: record.Device{Name: device}, Sweeps: []report.Sweep{{Sweep: *sw, Curve: curveOf(sw)}},
 	}}}
 	currents(&s, w.rq.At)
-	r := fit.One(curveOf(sw), setupOf(&s, sw, lastDigitsOf(&s)))
-	r.Choose("auto")
-	return r
+	return s
 }
 
 // tellResult says in a line what came of a device.
