@@ -223,6 +223,7 @@ func TestListenSourcesAreChecked(t *testing.T) {
 // Three recorded logs played at once through real lines: emit is never called by
 // two goroutines, and Listen ends with the logs.
 func TestListenLogs(t *testing.T) {
+	t.Parallel()
 	dir := t.TempDir()
 	var sources []Source
 	const frames = 40

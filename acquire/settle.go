@@ -134,7 +134,7 @@ func (g *Settling) Ahead() (Ahead, bool) {
 	}
 	t, v, digit := g.thinned()
 	whole, ok := fitDecay(t, v, digit)
-	if !ok || whole.tau > aheadTaus*(t[len(t)-1]-t[0]) || whole.second > secondF {
+	if !ok || whole.tau > aheadTaus*(t[len(t)-1]-t[0]) || whole.second(t, v, digit) > secondF {
 		return Ahead{}, false
 	}
 	k := 0
@@ -169,7 +169,6 @@ func (g *Settling) thinned() (t, v []float64, digit float64) {
 type decay struct {
 	end, u, tau float64
 	left        float64 // sum of squares
-	second      float64 // F by which a second exponential, slower, improves it
 }
 
 // bestDecay fits exponentials of tau and of so many times tau over a grid of tau and then
@@ -196,7 +195,7 @@ func bestDecay(t, v []float64, times ...float64) decay {
 	return best
 }
 
-// fitDecay fits one exponential, and asks whether a second one would fit better.
+// fitDecay fits one exponential.
 func fitDecay(t, v []float64, digit float64) (decay, bool) {
 	if len(t) < 6 {
 		return decay{}, false
@@ -215,10 +214,17 @@ func fitDecay(t, v []float64, digit float64) (decay, bool) {
 	_, inverse, _ := full.solve()
 	variance := math.Max(best.left/float64(len(t)-3), digit*digit/12)
 	best.u = math.Sqrt(variance * inverse[0])
-	if two := bestDecay(t, v, 1, slower); two.left < best.left {
-		best.second = (best.left - two.left) / math.Max(two.left/float64(len(t)-4), digit*digit/12)
-	}
 	return best, best.u >= 0
+}
+
+// second is by how much a second exponential, slower, improves the fit of one: F with one
+// degree of freedom, 0 not at all.
+func (d decay) second(t, v []float64, digit float64) float64 {
+	two := bestDecay(t, v, 1, slower)
+	if !(two.left < d.left) {
+		return 0
+	}
+	return (d.left - two.left) / math.Max(two.left/float64(len(t)-4), digit*digit/12)
 }
 
 // decaySums are the sums for an end value and exponentials of so many times tau.
