@@ -202,8 +202,10 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
-	for _, m := range w.bench.Meters {
-		w.roles = append(w.roles, m.Role)
+	for i, m := range w.bench.Meters {
+		if w.bench.Lines[i].Path != "" {
+			w.roles = append(w.roles, m.Role)
+		}
 	}
 	l := w.bench.Limits
 	least := func(part, bench record.Num) float64 {

@@ -274,12 +274,13 @@ func (w *sweeper) beep(s acquire.Sound) {
 // values shows the readings of every meter.
 func (w *sweeper) values(latest map[string]acquire.Shown) []screen.Value {
 	var out []screen.Value
-	for i, role := range w.roles {
+	for _, m := range w.bench.Meters {
+		role := m.Role
 		s, ok := latest[role]
 		if !ok {
 			continue
 		}
-		v := screen.Value{Role: role, Label: w.bench.Meters[i].Name, Age: s.Age, Stale: s.Stale, Note: s.Why}
+		v := screen.Value{Role: role, Label: m.Name, Age: s.Age, Stale: s.Stale, Note: s.Why}
 		if math.IsInf(s.Age, 0) {
 			v.Age = math.NaN()
 		}
