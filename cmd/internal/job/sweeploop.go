@@ -58,6 +58,7 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 				return err
 			}
 		case <-ticker.C:
+			w.breakDown()
 			s.tick(w.elapsed())
 			if w.drive != nil {
 				_ = w.drive.k.Beat() // a keeper that is gone is told of by its Done
@@ -88,6 +89,16 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 		}
 	}
 	return w.draw(s.show(w.elapsed()))
+}
+
+// breakDown puts the faults on the simulated bench whose time has come.
+func (w *sweeper) breakDown() {
+	for _, f := range w.faults.due(time.Now()) {
+		w.say("%s", tellFault(f))
+		if err := w.sim.Fault(f.Fault); err != nil {
+			w.say("%v", err)
+		}
+	}
 }
 
 // take passes an event on: to the store, to the interlock, to the stage.

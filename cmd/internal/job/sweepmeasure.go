@@ -7,6 +7,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"time"
 
 	"gatesill/acquire"
 	"gatesill/acquire/keeper"
@@ -256,6 +257,7 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if err := w.begin(ctx, device, direction); err != nil {
 		return false, err
 	}
+	w.faults.begin(time.Now())
 	id := w.sweep.ID
 	m := &measuring{w: w, r: runner, device: device, drives: plan.DrivesGate}
 	if err := w.lead(ctx, m); err != nil {
