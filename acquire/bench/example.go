@@ -82,6 +82,8 @@ line = "/dev/serial/by-id/usb-columns"
 column = 2
 unit = "degC"
 
+# A meter that sends nothing is read by you: line = "keyboard", speaks = "text", column = 1.
+
 [[supply]]
 drives = "gate"            # gate or drain; only for sweeps that the program drives
 name = "supply 1"

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bufio"
 	"fmt"
 	"strings"
 
@@ -53,6 +54,9 @@ stands still; --free follows the knob as it is turned; --drive sets a
 programmable supply, which needs limits for V_GS, I_D and P_D and is guarded by
 a process of its own; --spot reads V_GS at one current (--at), once it has
 settled. After every sweep a point at low power is taken again.
+
+Meters without a lead are read by you: line = "keyboard" in the bench file, and
+what they show is typed, one line a point.
 
 A session that a crash or a power cut ended goes on at the same device.
 
@@ -113,6 +117,7 @@ resistor at the gate protect.`,
 			if tempOf == "" && rq.Given.Temp.IsKnown() {
 				rq.Given.TempOf = "ambient"
 			}
+			rq.Input = bufio.NewReader(cmd.InOrStdin())
 			rq.Keyboard, rq.Size, rq.Raw = keyboard, terminalSize, returning{cmd.ErrOrStderr()}
 			return job.Sweep(cmd.Context(), env, rq)
 		},

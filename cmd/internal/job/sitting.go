@@ -206,7 +206,12 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 			}
 		}
 	}
-	points, _ := acquire.Pair(readings, pairingOf(b))
+	var points []acquire.Point
+	if typed, _ := typedBench(b); typed {
+		points = acquire.Joint(readings)
+	} else {
+		points, _ = acquire.Pair(readings, pairingOf(b))
+	}
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
 		sw.Columns, sw.Marks = acquire.Columns(points)

@@ -38,6 +38,7 @@ type SweepRequest struct {
 
 	Operator, Fixture, Session string
 
+	Input    lineReader                                           // stdin, where it is no terminal: typed readings
 	Keyboard func() (keys <-chan rune, restore func(), err error) // nil, or no keys: no terminal
 	Size     func() (width, height int)
 	Raw      io.Writer // the terminal while the keyboard is in use
@@ -59,11 +60,11 @@ type sweeper struct {
 	faults      faultPlan
 	drive       *driver // of the device in the fixture; nil: none
 	lock        *acquire.Interlock
+	typed       bool // the readings are typed by a person
 	scale       map[string]float64
 	swap        map[string]string // roles whose lines are exchanged
 	lines       []string          // what was said, newest first
 	beeps       int
-	control     bool
 	trouble     error // that ended a device
 	doc         report.SweepDoc
 }
@@ -99,19 +100,11 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 	if err := w.terminal(); err != nil {
 		return err
 	}
-	ctx, stop := context.WithCancel(ctx)
-	heard := make(chan error, 1)
-	go func() {
-		heard <- acquire.Listen(ctx, Sources(b), w.started, func(e acquire.Event) {
-			select {
-			case w.events <- e:
-			case <-ctx.Done():
-			}
-		})
-	}()
-	err = w.work(ctx)
-	stop()
-	<-heard
+	if w.typed {
+		err = w.typedWork(ctx)
+	} else {
+		err = w.listening(ctx, Sources(b))
+	}
 	restored := w.restore()
 	if errors.Is(err, errQuit) {
 		err = nil
@@ -120,6 +113,31 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 		err = terr
 	}
 	return errors.Join(err, restored)
+}
+
+// listening does the work while the lines of the bench are listened to.
+func (w *sweeper) listening(ctx context.Context, sources []acquire.Source) error {
+	inner, stop := context.WithCancelCause(ctx)
+	heard := make(chan struct{})
+	go func() {
+		defer close(heard)
+		err := acquire.Listen(inner, sources, w.started, func(e acquire.Event) {
+			select {
+			case w.events <- e:
+			case <-inner.Done():
+			}
+		})
+		if err != nil && inner.Err() == nil { // a source that cannot be used
+			stop(&Failure{Code: ExitInstrument, Err: err, Hint: "gatesill help bench-file shows every key"})
+		}
+	}()
+	err := w.work(inner)
+	if cause := context.Cause(inner); cause != nil && ctx.Err() == nil {
+		err = cause
+	}
+	stop(nil)
+	<-heard
+	return err
 }
 
 // findBench reads the bench file, or starts the simulated bench.
@@ -225,8 +243,12 @@ func (w *sweeper) prepare() error {
 		Vgs: least(w.part.MaxVgs, l.Vgs), Vds: least(w.part.MaxVds, l.Vds), ID: least(w.part.MaxID, l.ID),
 		PD: least(w.part.MaxPD, l.PD), Temp: l.Temp.Or(0),
 	}
+	var err error
+	if w.typed, err = typedBench(w.bench); err != nil {
+		return err
+	}
 	plan := w.plan()
-	if _, err := acquire.NewRunner(plan); err != nil {
+	if _, err := acquire.NewRunner(plan); err != nil && !w.typed {
 		return &Failure{Code: ExitFailed, Err: err, Hint: "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"}
 	}
 	w.lock = acquire.NewInterlock(plan)
@@ -293,7 +315,10 @@ func (w *sweeper) terminal() error {
 	if keys == nil {
 		w.picture = screen.NewLive(io.Discard, nil, false) // what is said goes to stderr line by line
 		w.restoreKeys = restore
-		if w.sim == nil && (w.rq.SkipChecks == "" || len(w.rq.Devices) != 1) {
+		if w.typed && len(w.rq.Devices) == 0 {
+			return Usage("gatesill sweep LOT DEVICE...", "sweep: stdin is no terminal: name the devices whose readings come in on it")
+		}
+		if !w.typed && w.sim == nil && (w.rq.SkipChecks == "" || len(w.rq.Devices) != 1) {
 			return Usage("--rehearsal needs nobody; so does one DEVICE that sits in the fixture already, with --skip-checks REASON",
 				"sweep: stdin is no terminal, and somebody must change the devices")
 		}
