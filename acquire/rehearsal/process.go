@@ -93,6 +93,7 @@ func Main(stdin io.Reader, stdout io.Writer) int {
 	for {
 		var o order
 		if err := in.Decode(&o); errors.Is(err, io.EOF) || o.Order == "bye" {
+			p.outlast(lastWords)
 			return 0
 		} else if err != nil {
 			out.Encode(reply{Error: fmt.Sprintf("%v: order: %v", ErrConfig, err)})
@@ -101,6 +102,27 @@ func Main(stdin io.Reader, stdout io.Writer) int {
 		if out.Encode(p.obey(o)) != nil {
 			return 1
 		}
+	}
+}
+
+// lastWords is how long the supplies stay for whoever still has their lines open.
+const lastWords = 10 * time.Second
+
+// outlast keeps the supplies until nobody has their lines open any more: when the
+// measuring program dies, whoever guards the supplies must still reach them.
+func (p *process) outlast(limit time.Duration) {
+	held := func() bool {
+		p.mu.Lock()
+		defer p.mu.Unlock()
+		for _, i := range p.bench.list {
+			if e := p.ends[i.line]; i.supply != nil && e.tty != nil && e.tty.open() {
+				return true
+			}
+		}
+		return false
+	}
+	for begun := time.Now(); held() && time.Since(begun) < limit; {
+		time.Sleep(20 * time.Millisecond)
 	}
 }
 

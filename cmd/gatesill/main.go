@@ -8,15 +8,17 @@ import (
 	"errors"
 	"os"
 	"os/signal"
+	"syscall"
 
 	"gatesill/cmd/internal/job"
 )
 
 func main() { os.Exit(run(os.Args[1:])) }
 
-// run runs one command line and gives its exit code.
+// run runs one command line and gives its exit code. Being told to end, and the loss
+// of the terminal, are an interrupt: supplies are switched off, what was read is kept.
 func run(args []string) int {
-	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt)
+	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM, syscall.SIGHUP)
 	defer stop()
 	root := newRoot()
 	root.SetArgs(args)

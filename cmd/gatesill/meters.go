@@ -11,6 +11,7 @@ import (
 
 func metersCmd(env *job.Env) *cobra.Command {
 	var rq job.MetersRequest
+	var faults []string
 	cmd := &cobra.Command{
 		Use: "meters", Short: "Show what is plugged in and what the meters of a bench say",
 		Long: `Without a bench file: lists the USB serial adapters and USB instruments that are
@@ -29,11 +30,16 @@ limits, and writes a bench file.`,
   gatesill meters --write attic.toml
   gatesill meters --bench attic.toml
   gatesill meters --bench attic.toml --for 10s --json
-  gatesill meters --rehearsal`,
+  gatesill meters --rehearsal
+  gatesill meters --rehearsal --fault overload:current@1`,
 		Args: exactly(0),
 		RunE: func(cmd *cobra.Command, _ []string) error {
 			if cmd.Flags().Changed("for") && rq.For <= 0 {
 				return job.Usage("--for 5s", "--for %v: how long is to be listened must be above 0", rq.For)
+			}
+			var err error
+			if rq.Faults, err = faultsOf(faults, rq.Rehearsal); err != nil {
+				return err
 			}
 			if isTerminal(env.Out) && os.Getenv("TERM") != "dumb" {
 				rq.Keyboard, rq.Size, rq.Draw = keyboard, terminalSize, env.Err
@@ -45,6 +51,7 @@ limits, and writes a bench file.`,
 	f.StringVar(&rq.Bench, "bench", "", "bench `FILE`: meters, lines, circuit (gatesill help bench-file)")
 	f.StringVar(&rq.Write, "write", "", "bench `FILE` to be written from answers")
 	f.BoolVar(&rq.Rehearsal, "rehearsal", false, "show a bench that does not exist; every value is invented")
+	f.StringArrayVar(&faults, "fault", nil, "with --rehearsal: `KIND:ROLE[@SECONDS][+SECONDS]` goes wrong (gatesill help sweep lists the kinds)")
 	f.DurationVar(&rq.For, "for", time.Duration(0), "how long to listen, such as 5s (default: until a key on a terminal, else 3s)")
 	return cmd
 }

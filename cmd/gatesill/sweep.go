@@ -1,6 +1,9 @@
 package main
 
 import (
+	"fmt"
+	"strings"
+
 	"github.com/spf13/cobra"
 
 	"gatesill/acquire"
@@ -8,10 +11,36 @@ import (
 	"gatesill/store/record"
 )
 
+// faultsOf reads the faults of a simulated bench.
+func faultsOf(texts []string, rehearsal bool) ([]job.Fault, error) {
+	if len(texts) > 0 && !rehearsal {
+		return nil, job.Usage("--rehearsal --fault "+texts[0], "--fault: only a simulated bench can have faults on order")
+	}
+	var out []job.Fault
+	for _, t := range texts {
+		f, err := job.ParseFault(t)
+		if err != nil {
+			return nil, err
+		}
+		out = append(out, f)
+	}
+	return out, nil
+}
+
+// faultTexts lists the faults, one a line.
+func faultTexts() string {
+	var t strings.Builder
+	for _, k := range job.FaultKinds() {
+		fmt.Fprintf(&t, "  %-12s %s\n", k.Kind, k.Text)
+	}
+	return t.String()
+}
+
 func sweepCmd(env *job.Env) *cobra.Command {
 	var rq job.SweepRequest
 	var byHand, free, drive, spot bool
 	var settle, tempOf string
+	var faults []string
 	cmd := &cobra.Command{
 		Use: "sweep LOT [DEVICE...]", Short: "Measure devices with the meters of a bench",
 		Long: `Reads the meters of a bench file, leads one device after the other through a
@@ -30,12 +59,20 @@ A session that a crash or a power cut ended goes on at the same device.
 keys: space or Enter take or go on, f finish, u take the last point back, r
 repeat, k skip, p put a lost prefix right, s stop, q end the session.
 
+On the simulated bench of --rehearsal, --fault lets something go wrong, to see what
+happens then: --fault silence:current@3 is 3 s after the first sweep has begun,
+unplug:load@3+2 is back 2 s later, swapped:gate,current@start is there from before
+the checks. Roles are those of the bench and, where it is driven, supply-gate and
+supply-drain. The faults:
+
+` + faultTexts() + `
 The program warns and helps; a current limit, a series resistor and a bleed
 resistor at the gate protect.`,
 		Example: `  gatesill sweep bag1 --rehearsal --drive
   gatesill sweep bag1 D1 D2 D3 --bench attic.toml --by-hand
   gatesill sweep bag1 --bench attic.toml --drive --from 2.5 --to 3.6 --step 25mV
-  gatesill sweep bag1 --bench jig.toml --spot --at 10mA --settle 10s`,
+  gatesill sweep bag1 --bench jig.toml --spot --at 10mA --settle 10s
+  gatesill sweep bag1 --rehearsal --drive --fault unplug:current@4`,
 		Args: between(1, -1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			rq.Lot, rq.Devices = args[0], args[1:]
@@ -61,6 +98,10 @@ resistor at the gate protect.`,
 				return job.Usage("--bench FILE names the bench (gatesill meters --write FILE makes one), --rehearsal needs no hardware",
 					"sweep: one of --bench and --rehearsal")
 			}
+			var err error
+			if rq.Faults, err = faultsOf(faults, rq.Rehearsal); err != nil {
+				return err
+			}
 			if settle != "" && settle != "auto" {
 				x, err := record.ParseNumber(settle, "s")
 				if err != nil {
@@ -85,6 +126,7 @@ resistor at the gate protect.`,
 	fs.BoolVar(&free, "free", false, "follow the knob")
 	fs.BoolVar(&drive, "drive", false, "set the gate by a programmable supply")
 	fs.BoolVar(&spot, "spot", false, "V_GS at one current")
+	fs.StringArrayVar(&faults, "fault", nil, "with --rehearsal: `KIND:ROLE[@SECONDS][+SECONDS]` goes wrong; may be repeated")
 	num(fs, &rq.From, "from", "V", "gate voltage to begin at")
 	num(fs, &rq.To, "to", "V", "gate voltage to end at")
 	num(fs, &rq.Step, "step", "V", "step of the gate voltage: 25mV")

@@ -25,6 +25,7 @@ type MetersRequest struct {
 	Bench     string        // bench file; "": what is plugged in is listed
 	Write     string        // bench file to be written from answers
 	Rehearsal bool          // a bench that does not exist
+	Faults    []Fault       // that it shall have
 	For       time.Duration // how long is listened; 0: 3 s, on a terminal until a key
 
 	Keyboard func() (keys <-chan rune, restore func(), err error) // nil, or no keys: nothing is drawn live
@@ -66,11 +67,25 @@ func rehearseMeters(ctx context.Context, env *Env, rq MetersRequest) (err error)
 	if err != nil {
 		return failed("", "%w", err)
 	}
+	if err := checkFaults(rq.Faults, c); err != nil {
+		return err
+	}
 	r, err := rehearse(ctx, c)
 	if err != nil {
 		return err
 	}
 	defer func() { err = errors.Join(err, r.close()) }()
+	for _, f := range rq.Faults {
+		env.talk("%s", tellFault(f))
+		if f.Start || f.At == 0 {
+			if err := r.Fault(f.Fault); err != nil {
+				return failed("", "%w", err)
+			}
+			continue
+		}
+		later := time.AfterFunc(time.Duration(f.At*float64(time.Second)), func() { _ = r.Fault(f.Fault) }) // fails only with the bench itself
+		defer later.Stop()
+	}
 	if err := errors.Join(r.insert(c.Devices[0].Name), r.Knob(2.8, 0), r.Knob(3.3, 0.01)); err != nil {
 		return failed("", "rehearsal: %w", err)
 	}

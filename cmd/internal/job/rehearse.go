@@ -40,7 +40,9 @@ func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
 		return nil, failed("", "rehearsal: %w", err)
 	}
 	c.Folder = folder
-	r, err := rehearsal.Start(ctx, exe, []string{RehearsalVerb}, nil, c)
+	// It ends by close, after the keeper: an interrupt must not take the supplies
+	// away while they are being switched off.
+	r, err := rehearsal.Start(context.WithoutCancel(ctx), exe, []string{RehearsalVerb}, nil, c)
 	if err != nil {
 		return nil, &Failure{Code: ExitInstrument, Err: errors.Join(err, os.RemoveAll(folder)), Hint: "a rehearsal needs pseudo-terminals, which Linux and macOS have"}
 	}

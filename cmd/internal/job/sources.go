@@ -55,6 +55,9 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 	out := map[string]acquire.Timing{}
 	for i, in := range b.Meters {
 		l := b.Lines[i]
+		if l.Path == "" {
+			continue
+		}
 		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Float()}
 		for _, lead := range []string{"/dev/serial/", "/dev/ttyUSB", "COM"} {
 			if strings.HasPrefix(l.Path, lead) {

@@ -32,6 +32,7 @@ type SweepRequest struct {
 
 	Rehearsal  bool
 	Simulated  *rehearsal.Config // the simulated bench; nil: the standard one for the mode
+	Faults     []Fault           // that the simulated bench shall have
 	Given      record.Condition
 	SkipChecks string // why the bench is not checked first; "": it is
 
@@ -55,6 +56,7 @@ type sweeper struct {
 
 	restoreKeys func()
 	sim         *rehearsed
+	faults      faultPlan
 	drive       *driver // of the device in the fixture; nil: none
 	lock        *acquire.Interlock
 	scale       map[string]float64
@@ -148,6 +150,10 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 		}
 		c = &standard
 	}
+	if err := checkFaults(rq.Faults, *c); err != nil {
+		return nil, err
+	}
+	w.faults.left = slices.Clone(rq.Faults)
 	var names []string
 	for _, d := range c.Devices {
 		names = append(names, d.Name)
@@ -202,8 +208,10 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
-	for _, m := range w.bench.Meters {
-		w.roles = append(w.roles, m.Role)
+	for i, m := range w.bench.Meters {
+		if w.bench.Lines[i].Path != "" {
+			w.roles = append(w.roles, m.Role)
+		}
 	}
 	l := w.bench.Limits
 	least := func(part, bench record.Num) float64 {

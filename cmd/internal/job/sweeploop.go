@@ -58,6 +58,7 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 				return err
 			}
 		case <-ticker.C:
+			w.breakDown()
 			s.tick(w.elapsed())
 			if w.drive != nil {
 				_ = w.drive.k.Beat() // a keeper that is gone is told of by its Done
@@ -88,6 +89,16 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 		}
 	}
 	return w.draw(s.show(w.elapsed()))
+}
+
+// breakDown puts the faults on the simulated bench whose time has come.
+func (w *sweeper) breakDown() {
+	for _, f := range w.faults.due(time.Now()) {
+		w.say("%s", tellFault(f))
+		if err := w.sim.Fault(f.Fault); err != nil {
+			w.say("%v", err)
+		}
+	}
 }
 
 // take passes an event on: to the store, to the interlock, to the stage.
@@ -277,12 +288,13 @@ func (w *sweeper) beep(s acquire.Sound) {
 // values shows the readings of every meter.
 func (w *sweeper) values(latest map[string]acquire.Shown) []screen.Value {
 	var out []screen.Value
-	for i, role := range w.roles {
+	for _, m := range w.bench.Meters {
+		role := m.Role
 		s, ok := latest[role]
 		if !ok {
 			continue
 		}
-		v := screen.Value{Role: role, Label: w.bench.Meters[i].Name, Age: s.Age, Stale: s.Stale, Note: s.Why}
+		v := screen.Value{Role: role, Label: m.Name, Age: s.Age, Stale: s.Stale, Note: s.Why}
 		if math.IsInf(s.Age, 0) {
 			v.Age = math.NaN()
 		}

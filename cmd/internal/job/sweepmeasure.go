@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"slices"
 	"strings"
+	"time"
 
 	"gatesill/acquire"
 	"gatesill/fit"
@@ -254,6 +255,7 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if err := w.begin(ctx, device, direction); err != nil {
 		return false, err
 	}
+	w.faults.begin(time.Now())
 	id := w.sweep.ID
 	m := &measuring{w: w, r: runner, device: device, drives: plan.DrivesGate}
 	if err := w.lead(ctx, m); err != nil {
