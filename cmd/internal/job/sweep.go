@@ -63,7 +63,6 @@ type sweeper struct {
 	swap        map[string]string // roles whose lines are exchanged
 	lines       []string          // what was said, newest first
 	beeps       int
-	control     bool
 	trouble     error // that ended a device
 	doc         report.SweepDoc
 }
