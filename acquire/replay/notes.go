@@ -200,7 +200,6 @@ func readTexts(t *table.Text, notes []Note, opt Options) error {
 // word is a word of a note.
 type word struct {
 	text, low string
-	named     bool // behind a noun or a #: a name whatever it looks like
 }
 
 // readNote finds the device that goes in, and whether one goes out. The text why

@@ -165,8 +165,8 @@ func (im *importer) prepare(ctx context.Context) error {
 			im.env.warn("flags and bench file %s differ about the circuit; the flags were taken [%s]", report.Clean(im.rq.Bench), fit.CodeFlagWins)
 		}
 		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
-		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			im.env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
+		for _, text := range lapsed(b, time.Now().UTC().Format(time.DateOnly)) {
+			im.env.warn("%s [%s]", report.Clean(text), fit.CodeOverdue)
 		}
 	}
 	im.seen, im.answers, im.settled = map[string]string{}, map[string]string{}, map[string]map[string]string{}

@@ -148,8 +148,8 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 		if err != nil {
 			return nil, err
 		}
-		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
+		for _, text := range lapsed(b, time.Now().UTC().Format(time.DateOnly)) {
+			env.warn("%s [%s]", report.Clean(text), fit.CodeOverdue)
 		}
 		for _, text := range b.Cautions() {
 			env.warn("%s", report.Clean(text))

@@ -209,9 +209,7 @@ func (w *sweeper) driven(d driven, s stage) {
 		if d.err != nil {
 			w.say("supplies: %v", d.err)
 		}
-		if m, ok := s.(interface{ switchedOff(keeper.OffReport) }); ok {
-			m.switchedOff(d.off)
-		}
+		tellOff(s, d.off)
 	case d.err != nil:
 		w.say("supply of the %s: %v", d.what, d.err)
 		s.event(acquire.Event{At: w.elapsed(), Line: d.what + " supply", Role: d.what + " supply", Lost: true, Err: d.err})
@@ -236,6 +234,11 @@ func (w *sweeper) offAlone(r keeper.OffReport, s stage) {
 	w.say("the keeper switched off: %s", r.Reason)
 	w.saw(r)
 	s.event(acquire.Event{At: w.elapsed(), Line: "supplies", Role: "supplies", Lost: true, Err: fmt.Errorf("switched off: %s", r.Reason)})
+	tellOff(s, r)
+}
+
+// tellOff tells a stage of the off state, where it waits for it.
+func tellOff(s stage, r keeper.OffReport) {
 	if m, ok := s.(interface{ switchedOff(keeper.OffReport) }); ok {
 		m.switchedOff(r)
 	}
