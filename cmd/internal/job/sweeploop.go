@@ -150,13 +150,13 @@ func (w *sweeper) shown() map[string]acquire.Shown {
 }
 
 // hand sends the simulated hand to a gate voltage; a real one is told in words.
-func (w *sweeper) hand(v float64) { w.handAt(v, false) }
+func (w *sweeper) hand(v float64) { w.handAt(v, handRate) }
 
-func (w *sweeper) handAt(v float64, creep bool) {
+func (w *sweeper) handAt(v, rate float64) {
 	if w.sim == nil || w.sim.Supplies()["gate"] != "" { // a driven gate has no knob
 		return
 	}
-	if err := w.sim.turn(v, creep); err != nil {
+	if err := w.sim.turn(v, rate); err != nil {
 		w.say("%v", err)
 	}
 }
