@@ -7,6 +7,7 @@ import (
 	"math"
 	"os"
 
+	"gatesill/acquire"
 	"gatesill/acquire/bench"
 	"gatesill/acquire/rehearsal"
 )
@@ -27,7 +28,7 @@ type rehearsed struct {
 }
 
 // handRate is how fast the simulated hand turns the knob outside of a sweep, V/s.
-const handRate = 0.5
+const handRate = 1.0
 
 // rehearse starts a simulated bench.
 func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
@@ -76,16 +77,61 @@ func (r *rehearsed) insert(device string) error {
 // turn sends the simulated hand to a gate voltage at a rate, V/s; NaN lets it stop
 // where it is.
 func (r *rehearsed) turn(v, rate float64) error {
-	if v == r.aim && rate == r.rate || math.IsNaN(v) && math.IsNaN(r.aim) {
-		return nil
-	}
-	r.aim, r.rate = v, rate
 	if math.IsNaN(v) {
+		if math.IsNaN(r.aim) {
+			return nil
+		}
 		t, err := r.Truth()
 		if err != nil {
 			return err
 		}
+		r.aim = math.NaN()
 		return r.Knob(t.Vg, 0)
 	}
+	if v == r.aim && rate == r.rate {
+		return nil
+	}
+	r.aim, r.rate = v, rate
 	return r.Knob(v, rate)
+}
+
+// hand is what the hand of a rehearsal does for the runner of a sweep.
+func (m *measuring) hand(at float64) {
+	h := m.r.Hand()
+	id := math.Abs(m.w.last[acquire.Current].number.Value.Float())
+	if m.w.rq.Mode == acquire.AtSpot && id > showsFrom && m.nudge(h, id, at) { // false while not known
+		return
+	}
+	m.w.handAt(h.To, h.Rate)
+}
+
+// showsFrom is the current from which the hand of a rehearsal takes more care, A.
+const showsFrom = 1e-5
+
+// nudge brings the current of a spot to its place as people do: a small turn, a
+// look at what the meters make of it, another one. It reports whether that was its
+// business.
+func (m *measuring) nudge(h acquire.Hand, id, at float64) bool {
+	want, known := m.w.plan().At.Get()
+	if !known || m.done != nil {
+		return false
+	}
+	if math.IsNaN(h.To) {
+		v := m.r.View(at)
+		if v.Paused != "" || v.Fix != "" || math.Abs(id/want-1) < 0.025 {
+			return false
+		}
+	}
+	const look, perVolt = 1.2, 15.0 // s between turns; the current grows e-fold in 1/24 to 1/5 V
+	if at-m.nudged < look {
+		return true
+	}
+	m.nudged = at
+	t, err := m.w.sim.Truth()
+	if err != nil {
+		return false
+	}
+	step := math.Max(-0.1, math.Min(0.1, math.Log(want/id)/perVolt))
+	m.w.handAt(t.Vg+m.w.part.Sign()*step, handRate)
+	return true
 }

@@ -19,8 +19,9 @@ type measuring struct {
 	drives  bool
 	done    *acquire.Done
 	doneAt  float64
-	offs    int  // off states still waited for
-	safe    bool // the off state was told
+	nudged  float64 // when the simulated hand last turned a little
+	offs    int     // off states still waited for
+	safe    bool    // the off state was told
 	repeat  bool
 	trouble bool
 	reason  *typing // a reason that is being typed
@@ -30,8 +31,7 @@ func (m *measuring) event(e acquire.Event) { m.obey(m.r.Event(e)) }
 func (m *measuring) tick(at float64) {
 	m.obey(m.r.Tick(at))
 	if m.w.sim != nil && !m.drives {
-		h := m.r.Hand()
-		m.w.handAt(h.To, h.Rate)
+		m.hand(at)
 	}
 }
 
