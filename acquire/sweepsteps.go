@@ -368,7 +368,7 @@ func (r *Runner) follow(points []Point) {
 			return
 		}
 	} else if r.slowAt == 0 && r.idNow() >= r.floor() {
-		r.slowAt = r.now - 2 // not at once
+		r.slowAt = r.now // points come late, the first ones above all
 	} else if r.slowAt > 0 && now > top+0.1 && r.now > r.slowAt+5 {
 		r.slowAt = r.now
 		r.say("turn slower: nothing can be taken at this rate")
