@@ -31,10 +31,15 @@ type simBench struct {
 	queue []rehearsal.Sent
 	heard []acquire.Event // not yet handed on
 
+<<<<<<< HEAD
 	aim     float64                          // V, of the hand; NaN none
 	turning float64                          // V/s
 	rate    func(h acquire.Hand) (v float64) // V/s of the hand
 	orders  []string                         // that the supplies were given
+=======
+	aim  float64                      // V, of the hand; NaN none
+	rate func(h acquire.Hand) float64 // V/s of the hand
+>>>>>>> w/truth
 }
 
 // simLine is the far end of a line for its handler.
@@ -172,9 +177,7 @@ func (s *simBench) idle(seconds float64) {
 
 // command gives a supply an order, as the keeper would after its checks.
 func (s *simBench) command(drives, format string, args ...any) {
-	text := fmt.Sprintf(format, args...)
-	s.orders = append(s.orders, drives+" "+text)
-	s.b.Hear("supply-"+drives, []byte(text+"\n"))
+	s.b.Hear("supply-"+drives, fmt.Appendf(nil, format+"\n", args...))
 }
 
 // turn lets the hand do what it is asked for.
