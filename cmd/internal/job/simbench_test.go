@@ -31,15 +31,10 @@ type simBench struct {
 	queue []rehearsal.Sent
 	heard []acquire.Event // not yet handed on
 
-<<<<<<< HEAD
 	aim     float64                          // V, of the hand; NaN none
 	turning float64                          // V/s
 	rate    func(h acquire.Hand) (v float64) // V/s of the hand
 	orders  []string                         // that the supplies were given
-=======
-	aim  float64                      // V, of the hand; NaN none
-	rate func(h acquire.Hand) float64 // V/s of the hand
->>>>>>> w/truth
 }
 
 // simLine is the far end of a line for its handler.
