@@ -307,9 +307,17 @@ func (w *sweeper) conclude() error {
 		err = report.SweepTable(w.env.Out, w.doc, w.env.style())
 	}
 	if err == nil && w.trouble != nil {
-		return &Failure{Code: ExitInstrument, Err: w.trouble, Hint: "gatesill meters --bench " + Quote(first(w.rq.Bench, "FILE")) + " shows what each meter says"}
+		return &Failure{Code: ExitInstrument, Err: w.trouble, Hint: w.metersVerb() + " shows what each meter says"}
 	}
 	return err
+}
+
+// metersVerb is the command that shows the meters of this bench.
+func (w *sweeper) metersVerb() string {
+	if w.sim != nil {
+		return "gatesill meters --rehearsal"
+	}
+	return "gatesill meters --bench " + Quote(w.rq.Bench)
 }
 
 // say tells the operator something, on the screen or as a line.
