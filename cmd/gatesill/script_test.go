@@ -2,6 +2,7 @@ package main
 
 import (
 	"encoding/json"
+	"flag"
 	"fmt"
 	"math"
 	"os"
@@ -15,6 +16,10 @@ import (
 )
 
 func TestMain(m *testing.M) {
+	// The scripts of sweeps wait for meters most of the time.
+	if err := flag.Set("test.parallel", "6"); err != nil {
+		panic(err)
+	}
 	testscript.Main(m, map[string]func(){"gatesill": main})
 }
 

@@ -182,7 +182,17 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 			}
 		}
 	}
-	points, _ := acquire.Pair(readings, acquire.Pairing{Timing: Timings(b)})
+	pairing := acquire.Pairing{Timing: Timings(b)}
+	events, err := tx.Events(sw.SessionID)
+	if err != nil {
+		return 0, err
+	}
+	for _, e := range events {
+		if e.SweepID == sw.ID && e.Kind == "mode" {
+			pairing = pairingOf(acquire.Mode(e.Text), pairing.Timing)
+		}
+	}
+	points, _ := acquire.Pair(readings, pairing)
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
 		sw.Columns, sw.Marks = acquire.Columns(points)

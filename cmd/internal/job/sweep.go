@@ -174,6 +174,12 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 		simulated.Devices = append(simulated.Devices, d)
 	}
 	var err error
+	// Those that an earlier session left unfinished may be measured besides.
+	for _, d := range c.Devices {
+		if !slices.Contains(rq.Devices, d.Name) {
+			simulated.Devices = append(simulated.Devices, d)
+		}
+	}
 	if w.sim, err = rehearse(ctx, simulated); err != nil {
 		return nil, err
 	}
@@ -248,8 +254,13 @@ func (w *sweeper) plan() acquire.Plan {
 }
 
 func (w *sweeper) pairing() acquire.Pairing {
-	p := acquire.Pairing{Timing: w.timing, Free: w.rq.Mode == acquire.Free}
-	if w.rq.Mode == acquire.Driven {
+	return pairingOf(w.rq.Mode, w.timing)
+}
+
+// pairingOf is how readings of a sweep become points.
+func pairingOf(mode acquire.Mode, timing map[string]acquire.Timing) acquire.Pairing {
+	p := acquire.Pairing{Timing: timing, Free: mode == acquire.Free}
+	if mode == acquire.Driven {
 		p.Window = drivenWindow
 	}
 	return p

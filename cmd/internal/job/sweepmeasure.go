@@ -257,6 +257,9 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if err := w.begin(ctx, device, direction); err != nil {
 		return false, err
 	}
+	if err := w.sitting.event("mode", "%s", plan.Mode); err != nil {
+		return false, err
+	}
 	w.faults.begin(time.Now())
 	id := w.sweep.ID
 	m := &measuring{w: w, r: runner, device: device, drives: plan.DrivesGate}
