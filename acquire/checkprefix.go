@@ -64,6 +64,9 @@ func (c *PrefixCheck) Fix(v PrefixVerdict) float64 {
 	return f
 }
 
+// leastLoad is the voltage across the load resistor from which it tells the current, V.
+const leastLoad = 0.02
+
 // prefixes that meters lose, with what their channel then is.
 var prefixes = []struct {
 	ratio  float64
@@ -96,7 +99,8 @@ func (c *PrefixCheck) Look(p Point, digit float64) PrefixVerdict {
 	}
 	switch {
 	case !math.IsNaN(p.Vl):
-		if math.Abs(p.Vl) < 0.02 {
+		// So little voltage tells nothing, unless the current meter claims a lot more.
+		if math.Abs(p.Vl) < leastLoad && !(math.Abs(p.Id)*rl > 25*leastLoad) {
 			return none
 		}
 		ref = math.Abs(p.Vl) / rl

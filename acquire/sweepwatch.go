@@ -1,6 +1,9 @@
 package acquire
 
-import "fmt"
+import (
+	"fmt"
+	"slices"
+)
 
 // lost deals with a line that failed.
 func (r *Runner) lost(e Event) {
@@ -9,7 +12,10 @@ func (r *Runner) lost(e Event) {
 	}
 	r.lostLines[e.Line] = true
 	text := fmt.Sprintf("the line of the %s meter is lost", e.Role)
-	if e.Role == "" {
+	switch {
+	case e.Role != "" && !slices.Contains(r.plan.Roles, e.Role): // a supply
+		text = e.Role
+	case e.Role == "":
 		text = fmt.Sprintf("line %s is lost", e.Line)
 	}
 	if e.Err != nil {
@@ -90,6 +96,10 @@ func (r *Runner) watch() {
 		return
 	}
 	if r.verdict.Refuse && !was.Refuse {
+		if r.plan.driven() { // nothing may go on by itself, and nobody may be there
+			r.stop("prefix", r.verdict.Text)
+			return
+		}
 		r.emit(Noted{"prefix", r.verdict.Text})
 		r.say("%s", r.verdict.Text)
 		r.sound(SoundAttention)

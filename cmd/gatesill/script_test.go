@@ -2,6 +2,7 @@ package main
 
 import (
 	"encoding/json"
+	"flag"
 	"fmt"
 	"math"
 	"os"
@@ -15,6 +16,10 @@ import (
 )
 
 func TestMain(m *testing.M) {
+	// The scripts of sweeps wait for meters most of the time.
+	if err := flag.Set("test.parallel", "6"); err != nil {
+		panic(err)
+	}
 	testscript.Main(m, map[string]func(){"gatesill": main})
 }
 
@@ -40,6 +45,10 @@ func buildProgram(t *testing.T) (dir, bin string) {
 //
 //	json PATH VALUE [TOLERANCE]   the last stdout as JSON has this value there
 //	code N command...             the command ends in exit code N
+//	cut N SIGNAL CODE command...  the command gets the signal when the store holds N readings, and ends in
+//	                              exit code CODE; what it says is in the files stdout and stderr
+//	supplies off                  the last that the supplies of a simulated bench heard left both outputs off
+//	sweeps N DEVICE...            the sweeps in the store that count are of these devices, with at least N readings each
 //
 // PATH is keys and indexes joined by '/'; VALUE is a number, a text, null, true
 // or false, or len=N for the length of a list or object.
@@ -59,7 +68,9 @@ func TestScripts(t *testing.T) {
 			env.Setenv("HOME", env.WorkDir)
 			return nil
 		},
-		Cmds:                map[string]func(*testscript.TestScript, bool, []string){"json": jsonCmd, "code": codeCmd},
+		Cmds: map[string]func(*testscript.TestScript, bool, []string){
+			"json": jsonCmd, "code": codeCmd, "cut": cutCmd, "supplies": suppliesCmd, "sweeps": sweepsCmd,
+		},
 		RequireExplicitExec: true,
 		UpdateScripts:       os.Getenv("GATESILL_UPDATE") != "",
 	})

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"os"
+	"slices"
 
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
@@ -22,6 +23,7 @@ type rehearsed struct {
 	*rehearsal.Rehearsal
 	bench    *bench.Bench
 	folder   string
+	names    []string // of the simulated devices
 	inserted string
 	aim      float64 // V, where the hand turns the knob; NaN: it stands still
 	rate     float64 // V/s
@@ -51,7 +53,11 @@ func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
 	if err != nil {
 		return nil, errors.Join(fmt.Errorf("rehearsal: bench file:%w", err), r.Close(), os.RemoveAll(folder))
 	}
-	return &rehearsed{Rehearsal: r, bench: b, folder: folder, aim: math.NaN()}, nil
+	h := &rehearsed{Rehearsal: r, bench: b, folder: folder, aim: math.NaN()}
+	for _, d := range c.Devices {
+		h.names = append(h.names, d.Name)
+	}
+	return h, nil
 }
 
 // close ends the simulated bench.
@@ -70,6 +76,9 @@ func (r *rehearsed) insert(device string) error {
 	r.inserted = device
 	if device == "" {
 		return r.Remove()
+	}
+	if n := len(r.names); n > 0 && !slices.Contains(r.names, device) { // any of them stands for it
+		device = r.names[len(device)%n]
 	}
 	return r.Insert(device)
 }

@@ -210,7 +210,17 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 	if typed, _ := typedBench(b); typed {
 		points = acquire.Joint(readings)
 	} else {
-		points, _ = acquire.Pair(readings, pairingOf(b))
+		mode := acquire.ByHand
+		events, err := tx.Events(sw.SessionID)
+		if err != nil {
+			return 0, err
+		}
+		for _, e := range events {
+			if e.SweepID == sw.ID && e.Kind == "mode" {
+				mode = acquire.Mode(e.Text)
+			}
+		}
+		points, _ = acquire.Pair(readings, pairingOf(b, mode))
 	}
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {

@@ -73,12 +73,16 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 // 16 ms is the usual setting of their timer. Common practice, no source.
 const adapterHold = 0.016
 
-// pairingOf says how the readings of a bench's meters are brought together.
-func pairingOf(b *bench.Bench) acquire.Pairing {
-	p := acquire.Pairing{Timing: Timings(b), Twice: map[string]bool{}}
+// pairingOf says how the readings of a bench's meters become points in a sweep of
+// that mode.
+func pairingOf(b *bench.Bench, mode acquire.Mode) acquire.Pairing {
+	p := acquire.Pairing{Timing: Timings(b), Twice: map[string]bool{}, Free: mode == acquire.Free}
 	for i, m := range b.Meters {
 		f, ok := meter.Find(b.Lines[i].Speaks)
 		p.Twice[m.Role] = ok && f.Twice
+	}
+	if mode == acquire.Driven {
+		p.Window = drivenWindow
 	}
 	return p
 }

@@ -194,6 +194,12 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 		simulated.Devices = append(simulated.Devices, d)
 	}
 	var err error
+	// Those that an earlier session left unfinished may be measured besides.
+	for _, d := range c.Devices {
+		if !slices.Contains(rq.Devices, d.Name) {
+			simulated.Devices = append(simulated.Devices, d)
+		}
+	}
 	if w.sim, err = rehearse(ctx, simulated); err != nil {
 		return nil, err
 	}
@@ -287,14 +293,7 @@ func (w *sweeper) plan() acquire.Plan {
 	return p
 }
 
-func (w *sweeper) pairing() acquire.Pairing {
-	p := pairingOf(w.bench)
-	p.Free = w.rq.Mode == acquire.Free
-	if w.rq.Mode == acquire.Driven {
-		p.Window = drivenWindow
-	}
-	return p
-}
+func (w *sweeper) pairing() acquire.Pairing { return pairingOf(w.bench, w.rq.Mode) }
 
 // drivenWindow is how long all must have stood still for a settled point where a
 // supply sets the gate, s: there is no hand that trembles, and the pairing asks for
@@ -351,9 +350,17 @@ func (w *sweeper) conclude() error {
 		err = report.SweepTable(w.env.Out, w.doc, w.env.style())
 	}
 	if err == nil && w.trouble != nil {
-		return &Failure{Code: ExitInstrument, Err: w.trouble, Hint: "gatesill meters --bench " + Quote(first(w.rq.Bench, "FILE")) + " shows what each meter says"}
+		return &Failure{Code: ExitInstrument, Err: w.trouble, Hint: w.metersVerb() + " shows what each meter says"}
 	}
 	return err
+}
+
+// metersVerb is the command that shows the meters of this bench.
+func (w *sweeper) metersVerb() string {
+	if w.sim != nil {
+		return "gatesill meters --rehearsal"
+	}
+	return "gatesill meters --bench " + Quote(w.rq.Bench)
 }
 
 // say tells the operator something, on the screen or as a line.

@@ -2,6 +2,7 @@ package job
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -211,10 +212,12 @@ func (w *sweeper) driven(d driven, s stage) {
 		}
 		tellOff(s, d.off)
 	case d.err != nil:
-		w.say("supply of the %s: %v", d.what, d.err)
-		s.event(acquire.Event{At: w.elapsed(), Line: d.what + " supply", Role: d.what + " supply", Lost: true, Err: d.err})
+		s.event(acquire.Event{At: w.elapsed(), Line: d.what + " supply", Role: d.what + " supply", Lost: true, Err: plainKeeper(d.err)})
 	}
 }
+
+// plainKeeper is an error of the keeper without its own name.
+func plainKeeper(err error) error { return errors.New(strings.TrimPrefix(err.Error(), "keeper: ")) }
 
 // saw notes what the way to the off state proved.
 func (w *sweeper) saw(r keeper.OffReport) {

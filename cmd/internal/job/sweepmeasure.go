@@ -255,6 +255,9 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if err := w.begin(ctx, device, direction); err != nil {
 		return false, err
 	}
+	if err := w.sitting.event("mode", "%s", plan.Mode); err != nil {
+		return false, err
+	}
 	w.faults.begin(time.Now())
 	id := w.sweep.ID
 	m := &measuring{w: w, r: runner, device: device, drives: plan.DrivesGate}
@@ -289,18 +292,26 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if w.keys == nil {
 		return false, nil
 	}
-	return w.askAgain(ctx, device, *m.done)
+	return w.askAgain(ctx, m)
 }
 
 // askAgain asks what comes after a sweep: the next device, or this one again.
-func (w *sweeper) askAgain(ctx context.Context, device string, d acquire.Done) (again bool, err error) {
+func (w *sweeper) askAgain(ctx context.Context, m *measuring) (again bool, err error) {
+	device, d := m.device, *m.done
 	if d.Skipped {
 		return false, nil
 	}
 	quit := false
-	if err := w.lead(ctx, &asking{w: w, title: "  device " + device, text: func(float64) string {
-		return d.Why + ": space goes on to the next device, r measures this one again, q ends the session"
-	}, other: map[rune]func(){'r': func() { again = true }, 'q': func() { quit = true }}}); err != nil {
+	keys := map[rune]func(){'r': func() { again = true }, 'q': func() { quit = true }}
+	text := "space goes on to the next device, r measures this one again, q ends the session"
+	if fix := m.r.View(w.elapsed()).Fix; fix != "" {
+		text = "p: " + fix + ", and measures again; " + text
+		keys['p'] = func() {
+			m.key('p')
+			again = true
+		}
+	}
+	if err := w.lead(ctx, &asking{w: w, title: "  device " + device, text: func(float64) string { return d.Why + ": " + text }, other: keys}); err != nil {
 		return false, err
 	}
 	if quit {

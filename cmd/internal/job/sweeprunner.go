@@ -19,6 +19,8 @@ type measuring struct {
 	drives  bool
 	done    *acquire.Done
 	doneAt  float64
+	held    string  // why nothing goes on, where nobody is there
+	heldAt  float64 // since when
 	nudged  float64 // when the simulated hand last turned a little
 	offs    int     // off states still waited for
 	safe    bool    // the off state was told
@@ -33,7 +35,40 @@ func (m *measuring) tick(at float64) {
 	if m.w.sim != nil && !m.drives {
 		m.hand(at)
 	}
+	if m.w.keys == nil && m.done == nil {
+		m.alone(at)
+	}
 }
+
+// alone does what an operator would where there is none: a pause by hand is not
+// waited out for ever, and with --yes a lost prefix is put right.
+func (m *measuring) alone(at float64) {
+	v := m.r.View(at)
+	why := first(v.Paused, m.refusal(v))
+	switch {
+	case why == "":
+		m.heldAt, m.held = 0, ""
+	case m.held == "":
+		m.heldAt, m.held = at, why
+	case v.Fix != "" && m.w.env.Yes:
+		m.key('p')
+		m.held = ""
+	case at-m.heldAt > alonePatience:
+		m.held, m.trouble = why, true
+		m.key('s')
+	}
+}
+
+// refusal is why readings are refused that one key would put right.
+func (m *measuring) refusal(v acquire.View) string {
+	if v.Fix == "" {
+		return ""
+	}
+	return first(v.Said, v.Fix)
+}
+
+// alonePatience is how long a pause lasts where nobody is there to end it, s.
+const alonePatience = 8.0
 
 func (m *measuring) over() bool {
 	if m.done == nil {
@@ -82,11 +117,14 @@ func (m *measuring) obey(orders []acquire.Order) {
 			w.lock.SetScale(o.Role, o.Factor)
 			_ = w.sitting.event("scale", "%s %g", o.Role, o.Factor)
 		case acquire.Noted:
-			m.trouble = m.trouble || slices.Contains([]string{"lost", "silent", "frames", "gate", "drain", "stuck"}, o.Kind)
+			m.trouble = m.trouble || slices.Contains([]string{"lost", "silent", "prefix", "frames", "gate", "drain", "stuck"}, o.Kind)
 			_ = w.sitting.event(o.Kind, "%s", o.Text)
 		case acquire.Done:
+			if m.held != "" { // nobody was there to stop it
+				o.Why = m.held
+			}
 			m.done, m.doneAt = &o, w.elapsed()
-			if o.Complete {
+			if o.Complete || o.Skipped {
 				m.trouble = false
 			}
 		}

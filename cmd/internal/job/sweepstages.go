@@ -44,7 +44,7 @@ func (s *waiting) tick(at float64) {
 		text = append(text, t)
 	}
 	s.err = &Failure{Code: ExitInstrument, Err: fmt.Errorf("nothing comes from: %s", strings.Join(text, ", ")),
-		Hint: "gatesill meters --bench " + Quote(first(s.w.rq.Bench, "FILE")) + " shows each line; is the meter on, and sending?"}
+		Hint: s.w.metersVerb() + " shows each line; is the meter on, and sending?"}
 }
 
 func (s *waiting) missing() (out []string) {
