@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"math"
 	"path/filepath"
 	"slices"
@@ -60,7 +61,8 @@ type sweeper struct {
 	drive       *driver // of the device in the fixture; nil: none
 	lock        *acquire.Interlock
 	scale       map[string]float64
-	swap        map[string]string // roles whose lines are exchanged
+	swap        map[string]string // roles of the bench file whose lines are exchanged
+	file        *bench.Bench      // as it was read, with nothing exchanged
 	lines       []string          // what was said, newest first
 	beeps       int
 	control     bool
@@ -102,17 +104,26 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 	ctx, stop := context.WithCancel(ctx)
 	heard := make(chan error, 1)
 	go func() {
-		heard <- acquire.Listen(ctx, Sources(b), w.started, func(e acquire.Event) {
+		err := acquire.Listen(ctx, Sources(b), w.started, func(e acquire.Event) {
 			select {
 			case w.events <- e:
 			case <-ctx.Done():
 			}
 		})
+		if ctx.Err() != nil {
+			err = nil // the listening was ended, it did not fail
+		}
+		heard <- err
+		if err != nil {
+			stop() // a line that can never come: nothing is to be waited for
+		}
 	}()
 	err = w.work(ctx)
 	stop()
-	<-heard
 	restored := w.restore()
+	if lerr := <-heard; lerr != nil {
+		err = &Failure{Code: ExitInstrument, Err: lerr, Hint: "gatesill help bench-file shows every key"}
+	}
 	if errors.Is(err, errQuit) {
 		err = nil
 	}
@@ -208,6 +219,9 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
+	maps.Copy(w.scale, w.past.scale)
+	maps.Copy(w.swap, w.past.swap)
+	w.file, w.bench = w.bench, exchangedBench(w.bench, w.swap)
 	for i, m := range w.bench.Meters {
 		if w.bench.Lines[i].Path != "" {
 			w.roles = append(w.roles, m.Role)
