@@ -26,7 +26,7 @@ func run(args []string) int {
 	if err == nil {
 		return job.ExitDone
 	}
-	if ctx.Err() != nil {
+	if ctx.Err() != nil || errors.Is(err, context.Canceled) { // the latter by a key
 		return job.ExitInterrupted
 	}
 	job.WriteError(os.Stderr, err)

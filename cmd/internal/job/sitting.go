@@ -35,6 +35,8 @@ type sitting struct {
 	next    int       // measuring order of the next sweep
 	meters  shownRanges
 
+	held  *holding      // of the session
+	past  agreed        // in a session that is gone on with
 	sweep *record.Sweep // being measured; nil: none
 	cut   []cutShort    // sweeps that an earlier program left unfinished
 }
@@ -91,6 +93,9 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (*sitting, err
 				return err
 			}
 			s.started = now
+			if s.held, err = hold(s.db.Path(), s.session.ID); err != nil {
+				return err
+			}
 		}
 		sweeps, err := tx.Sweeps(s.lot.ID, false)
 		for _, sw := range sweeps {
@@ -99,6 +104,7 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (*sitting, err
 		return err
 	})
 	if err != nil {
+		s.held.release()
 		_, cerr := db.RemoveIfEmpty(ctx)
 		return nil, storeFailure(errors.Join(err, cerr))
 	}
@@ -162,31 +168,56 @@ func (s *sitting) takeUp(tx *store.Tx, benchID string, now time.Time) error {
 		if sw.LotID != s.lot.ID {
 			continue
 		}
-		points, err := s.recover(tx, sw)
-		if err != nil {
+		if err := s.takeUpSweep(tx, sw, benchID, now); err != nil {
 			return err
-		}
-		device, err := tx.DeviceByID(sw.DeviceID)
-		if err != nil {
-			return err
-		}
-		s.cut = append(s.cut, cutShort{device.Name, points})
-		if sw.SessionID == "" {
-			continue
-		}
-		session, err := tx.Session(sw.SessionID)
-		if err != nil {
-			return err
-		}
-		began, err := time.Parse(time.RFC3339Nano, session.StartedAt)
-		if err == nil && session.BenchID == benchID && now.Sub(began) < resumeWithin && now.After(began) {
-			s.session, s.started = session, now.Add(-now.Sub(began))
-			if err := tx.AddEvents([]record.Event{{SessionID: session.ID, SweepID: sw.ID, At: now.Sub(began).Seconds(), Kind: "resumed", Text: device.Name}}); err != nil {
-				return err
-			}
 		}
 	}
 	return nil
+}
+
+// takeUpSweep takes up one sweep, unless another program is measuring it.
+func (s *sitting) takeUpSweep(tx *store.Tx, sw *record.Sweep, benchID string, now time.Time) error {
+	if sw.SessionID != "" && sw.SessionID != s.session.ID {
+		held, err := hold(s.db.Path(), sw.SessionID)
+		if err != nil {
+			return nil
+		}
+		defer func() {
+			if s.session.ID != sw.SessionID {
+				held.release()
+				return
+			}
+			s.held.release() // of one begun earlier, which is not gone on with
+			s.held = held
+		}()
+	}
+	points, err := s.recover(tx, sw)
+	if err != nil {
+		return err
+	}
+	device, err := tx.DeviceByID(sw.DeviceID)
+	if err != nil {
+		return err
+	}
+	s.cut = append(s.cut, cutShort{device.Name, points})
+	if sw.SessionID == "" {
+		return nil
+	}
+	session, err := tx.Session(sw.SessionID)
+	if err != nil {
+		return err
+	}
+	began, err := time.Parse(time.RFC3339Nano, session.StartedAt)
+	if err != nil || session.BenchID != benchID || now.Sub(began) >= resumeWithin || !now.After(began) {
+		return nil
+	}
+	s.session, s.started = session, now.Add(-now.Sub(began))
+	es, err := tx.Events(session.ID)
+	if err != nil {
+		return err
+	}
+	s.past = agreedUntil(es, math.Inf(1))
+	return tx.AddEvents([]record.Event{{SessionID: session.ID, SweepID: sw.ID, At: now.Sub(began).Seconds(), Kind: "resumed", Text: device.Name}})
 }
 
 // recover seals a sweep with what its readings give, and sets it aside: it is not
@@ -197,30 +228,39 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 		return 0, err
 	}
 	b := s.bench
+	var es []record.Event
 	if sw.SessionID != "" {
-		if session, err := tx.Session(sw.SessionID); err == nil && session.BenchID != "" {
+		session, err := tx.Session(sw.SessionID)
+		if err != nil {
+			return 0, err
+		}
+		if es, err = tx.Events(session.ID); err != nil {
+			return 0, err
+		}
+		if session.BenchID != "" {
 			if _, text, err := tx.Bench(session.BenchID); err == nil {
 				if old, err := bench.Parse([]byte(text)); err == nil {
 					b = old
 				}
 			}
 		}
+		last := 0.0
+		for _, r := range readings {
+			last = max(last, r.At)
+		}
+		b = exchangedBench(b, agreedUntil(es, last).swap)
 	}
 	var points []acquire.Point
 	if typed, _ := typedBench(b); typed {
-		points = acquire.Joint(readings)
+		points = acquire.Joint(asCounted(readings, es))
 	} else {
 		mode := acquire.ByHand
-		events, err := tx.Events(sw.SessionID)
-		if err != nil {
-			return 0, err
-		}
-		for _, e := range events {
+		for _, e := range es {
 			if e.SweepID == sw.ID && e.Kind == "mode" {
 				mode = acquire.Mode(e.Text)
 			}
 		}
-		points, _ = acquire.Pair(readings, pairingOf(b, mode))
+		points, _ = acquire.Pair(asCounted(readings, es), pairingOf(b, mode))
 	}
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
@@ -331,7 +371,9 @@ func fillSweep(sw *record.Sweep, points []acquire.Point, returned bool) {
 
 // close ends the sitting. A sweep that is still open stays so, to be taken up.
 func (s *sitting) close() error {
-	return storeFailure(errors.Join(s.live.Close(), s.db.Close()))
+	err := errors.Join(s.live.Close(), s.db.Close())
+	s.held.release()
+	return storeFailure(err)
 }
 
 // instruments are those of the bench file. A meter without ranges gets what it

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"math"
 	"path/filepath"
 	"slices"
@@ -62,7 +63,8 @@ type sweeper struct {
 	lock        *acquire.Interlock
 	typed       bool // the readings are typed by a person
 	scale       map[string]float64
-	swap        map[string]string // roles whose lines are exchanged
+	swap        map[string]string // roles of the bench file whose lines are exchanged
+	file        *bench.Bench      // as it was read, with nothing exchanged
 	lines       []string          // what was said, newest first
 	beeps       int
 	trouble     error // that ended a device
@@ -232,6 +234,9 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
+	maps.Copy(w.scale, w.past.scale)
+	maps.Copy(w.swap, w.past.swap)
+	w.file, w.bench = w.bench, exchangedBench(w.bench, w.swap)
 	for i, m := range w.bench.Meters {
 		if w.bench.Lines[i].Path != "" {
 			w.roles = append(w.roles, m.Role)
