@@ -69,7 +69,7 @@ func SweepTable(w io.Writer, doc SweepDoc, style Style) error {
 	}
 	p.grid(grid{style: style, cols: []column{
 		{head: "device", cells: names}, {head: "points", cells: points, right: true},
-		{head: "V_GS(th)", cells: vth}, {head: "V_GS idle", cells: idle}, {head: "", cells: said, wrap: 30},
+		{head: "V_GS(th)", cells: vth}, {head: "V_GS idle", cells: idle}, {head: "", cells: said, wrap: 22},
 	}})
 	return p.err
 }

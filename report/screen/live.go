@@ -64,13 +64,30 @@ func (l *Live) Show(m Model) error {
 		if i > 0 {
 			b.WriteString("\r\n")
 		}
-		b.WriteString(line + lineEnd)
+		b.WriteString(line)
+		if columns(line) < width { // at the edge the cursor stands on the last character
+			b.WriteString(lineEnd)
+		}
 	}
 	if len(lines) < height {
 		b.WriteString(pageEnd)
 	}
 	_, err := io.WriteString(l.w, b.String())
 	return err
+}
+
+// columns is how many columns a drawn line takes, its codes left out.
+func columns(line string) int {
+	n := 0
+	for len(line) > 0 {
+		text, rest, coded := strings.Cut(line, "\x1b[")
+		n += textWidth(text)
+		if !coded {
+			break
+		}
+		_, line, _ = strings.Cut(rest, "m")
+	}
+	return n
 }
 
 // Close gives the terminal back as it was. It may be called again.

@@ -124,8 +124,12 @@ func layout(m Model, width, height int) *canvas {
 	all := spaced([][]part{head, notices, large, small, power}, height-used(head, notices, large, small, power))
 	room := height - used(all...)
 	if len(m.Plot.Points) > 0 || len(m.Plot.Fan.X) > 0 {
-		keep := min(len(lines), max(room-plotLeast, 0))
-		if n := room - keep; n >= plotLeast {
+		keep, taken := 0, 0
+		for keep < len(lines) && taken+lines[keep].rows <= room-plotLeast {
+			taken += lines[keep].rows
+			keep++
+		}
+		if n := room - taken; n >= plotLeast {
 			lines = lines[:keep]
 			all = append(all, []part{{n, func(c *canvas, y int) { drawPlot(c, m.Plot, y, n) }}})
 		}
@@ -253,7 +257,15 @@ func powerParts(p Power, width int) []part {
 func lineParts(lines []string, width int) []part {
 	out := make([]part, len(lines))
 	for i, l := range lines {
-		out[i] = part{1, func(c *canvas, y int) { c.textIn(0, y, width, l, plain) }}
+		rows := wrap(l, width)
+		if len(rows) > 1 {
+			rows = wrapHanging(l, width, min(2, width/3))
+		}
+		out[i] = part{len(rows), func(c *canvas, y int) {
+			for k, r := range rows {
+				c.text(0, y+k, r, plain)
+			}
+		}}
 	}
 	return out
 }

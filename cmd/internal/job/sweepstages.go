@@ -245,7 +245,17 @@ func (w *sweeper) zeros(ctx context.Context) error {
 
 // startCheck turns the gate and looks which meter moves.
 func (w *sweeper) startCheck(ctx context.Context, off float64) error {
-	for {
+	for first := true; ; first = false {
+		if !first { // the gate comes back from the turn before
+			begun := w.elapsed()
+			if err := w.lead(ctx, &asking{w: w, title: "  checks", text: func(float64) string { return "leave the gate at its off voltage" },
+				until: func() bool {
+					at := w.elapsed()
+					return at-begun > 1 && len(w.gateNear(off, at)) == 0 || at-begun > speakWithin
+				}}); err != nil {
+				return err
+			}
+		}
 		c := acquire.NewStartCheck(w.roles, w.part.Channel, w.given.Circuit)
 		sign := w.part.Sign()
 		turned := false
