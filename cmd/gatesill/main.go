@@ -26,7 +26,7 @@ func run(args []string) int {
 	if err == nil {
 		return job.ExitDone
 	}
-	if ctx.Err() != nil || errors.Is(err, context.Canceled) { // the latter by a key
+	if ctx.Err() != nil || errors.Is(err, context.Canceled) { // by a signal, or by Ctrl-C as a key
 		return job.ExitInterrupted
 	}
 	job.WriteError(os.Stderr, err)

@@ -9,6 +9,7 @@ import (
 	"os/exec"
 	"path/filepath"
 	"strconv"
+	"strings"
 	"syscall"
 	"time"
 
@@ -168,6 +169,22 @@ func suppliesCmd(ts *testscript.TestScript, neg bool, args []string) {
 			if time.Since(begun) > patience {
 				ts.Fatalf("%s: on %v, was on %v, after %d commands, the last %+v", filepath.Base(path), h.On, wasOn, n, h)
 			}
+		}
+	}
+	keeperOff(ts)
+}
+
+// keeperOff waits for the keeper's own last word: it outlives the program.
+func keeperOff(ts *testscript.TestScript) {
+	log := strings.TrimSuffix(ts.Getenv("GATESILL_STORE"), ".db") + ".supplies.log"
+	for begun := time.Now(); ; time.Sleep(50 * time.Millisecond) {
+		b, err := os.ReadFile(log)
+		ts.Check(err)
+		if i := strings.LastIndex(string(b), "off state: "); i >= 0 && strings.Contains(string(b[i:]), "Reached:true") {
+			return
+		}
+		if time.Since(begun) > patience {
+			ts.Fatalf("the keeper never says that it reached the off state")
 		}
 	}
 }
