@@ -64,7 +64,8 @@ type Line struct {
 	Every       record.Num // s between two questions
 	Integration record.Num // s over which it measures
 	Processing  record.Num // s from the end of integration to the first byte
-	LagU        record.Num // s, greatest error of the two
+	Lag         record.Num // s, further delay behind the gate meter, as gatesill sweep --find-lag finds it
+	LagU        record.Num // s, greatest error of the three
 }
 
 // Supply is a supply output that the program may drive.

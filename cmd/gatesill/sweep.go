@@ -106,6 +106,9 @@ resistor at the gate protect.`,
 			if rq.Faults, err = faultsOf(faults, rq.Rehearsal); err != nil {
 				return err
 			}
+			if rq.FindLag && rq.Mode == acquire.Driven {
+				return job.Usage("leave one of them out", "--find-lag needs a hand at the knob; where a supply sets the gate all stands still, and no lag matters")
+			}
 			if settle != "" && settle != "auto" {
 				x, err := record.ParseNumber(settle, "s")
 				if err != nil {
@@ -142,6 +145,7 @@ resistor at the gate protect.`,
 	fs.StringVar(&rq.Operator, "operator", "", "`NAME` of who measures")
 	fs.StringVar(&rq.Fixture, "fixture", "", "`NAME` of the fixture")
 	fs.StringVar(&rq.Session, "session", "", "`NAME` of the sitting")
+	fs.BoolVar(&rq.FindLag, "find-lag", false, "with the first device, find by how much the meters lag behind the gate's: one slow ramp up and one down at low power")
 	fs.StringVar(&rq.SkipChecks, "skip-checks", "", "do not check the bench first; the `REASON` is kept")
 	return cmd
 }

@@ -58,7 +58,7 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 		if l.Path == "" {
 			continue
 		}
-		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Float()}
+		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), Lag: l.Lag.Or(0), LagU: l.LagU.Float()}
 		for _, lead := range []string{"/dev/serial/", "/dev/ttyUSB", "COM"} {
 			if strings.HasPrefix(l.Path, lead) {
 				t.Jitter = adapterHold

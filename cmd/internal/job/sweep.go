@@ -35,6 +35,7 @@ type SweepRequest struct {
 	Simulated  *rehearsal.Config // the simulated bench; nil: the standard one for the mode
 	Faults     []Fault           // that the simulated bench shall have
 	Given      record.Condition
+	FindLag    bool   // by how much the meters lag behind the gate's, with the first device
 	SkipChecks string // why the bench is not checked first; "": it is
 
 	Operator, Fixture, Session string
@@ -61,7 +62,8 @@ type sweeper struct {
 	faults      faultPlan
 	drive       *driver // of the device in the fixture; nil: none
 	lock        *acquire.Interlock
-	typed       bool // the readings are typed by a person
+	typed       bool                      // the readings are typed by a person
+	lagged      map[string]acquire.Timing // of meters whose lag was found
 	scale       map[string]float64
 	swap        map[string]string // roles of the bench file whose lines are exchanged
 	file        *bench.Bench      // as it was read, with nothing exchanged
@@ -306,7 +308,13 @@ func (w *sweeper) plan() acquire.Plan {
 	return p
 }
 
-func (w *sweeper) pairing() acquire.Pairing { return pairingOf(w.bench, w.rq.Mode) }
+func (w *sweeper) pairing() acquire.Pairing {
+	p := pairingOf(w.bench, w.rq.Mode)
+	for role, t := range w.lagged {
+		p.Timing[role] = t
+	}
+	return p
+}
 
 // drivenWindow is how long all must have stood still for a settled point where a
 // supply sets the gate, s: there is no hand that trembles, and the pairing asks for

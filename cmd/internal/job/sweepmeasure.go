@@ -227,6 +227,11 @@ func (w *sweeper) device(ctx context.Context, device string) error {
 	case err != nil:
 		return err
 	}
+	if w.rq.FindLag && w.lagged == nil {
+		if err := w.findLag(ctx, device); err != nil {
+			return err
+		}
+	}
 	for {
 		again, err := w.measure(ctx, device)
 		if err != nil || !again {
