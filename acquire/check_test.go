@@ -251,6 +251,33 @@ func TestZeros(t *testing.T) {
 	}
 }
 
+// With some meters it can never be seen that a part may be touched.
+func TestInterlockBlind(t *testing.T) {
+	for _, x := range []struct {
+		roles []string
+		rl    float64
+		blind bool
+	}{
+		{[]string{Gate}, 10, true}, {[]string{Gate, Drain}, 10, true}, {[]string{Gate, Load}, math.NaN(), true},
+		{[]string{Gate, Load}, 10, false}, {[]string{Gate, Current}, math.NaN(), false}, {[]string{Gate, Supply}, math.NaN(), false},
+	} {
+		p := testPlan(ByHand)
+		p.Roles, p.Circuit.RL = x.roles, record.Known(x.rl)
+		l := NewInterlock(p)
+		if l.Blind() != x.blind {
+			t.Errorf("%v, R_L %g: blind %v", x.roles, x.rl, l.Blind())
+		}
+		for i := range 20 { // everything at zero, fresh
+			for _, role := range x.roles {
+				l.Event(Event{Readings: []record.Reading{{Role: role, At: 0.1 * float64(i), Value: record.Known(0), Unit: "V"}}})
+			}
+		}
+		if l.Open(2) == x.blind {
+			t.Errorf("%v, R_L %g: %v", x.roles, x.rl, l.Missing(2))
+		}
+	}
+}
+
 func TestInterlock(t *testing.T) {
 	for _, k := range kinds {
 		p := testPlan(ByHand)

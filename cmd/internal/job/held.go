@@ -4,6 +4,8 @@ import (
 	"errors"
 	"fmt"
 	"os"
+	"path/filepath"
+	"strings"
 )
 
 // errHeld says that another program leads the session.
@@ -17,10 +19,25 @@ type holding struct {
 	path string
 }
 
+// heldMark stands between the names of store and session.
+const heldMark = "-session-"
+
+// tidy removes what programs that were killed between two sweeps left of their signs.
+func tidy(store string) {
+	paths, _ := filepath.Glob(globEscape.Replace(store) + heldMark + "*")
+	for _, path := range paths {
+		if h, err := hold(store, strings.TrimPrefix(path, store+heldMark)); err == nil {
+			h.release()
+		}
+	}
+}
+
+var globEscape = strings.NewReplacer(`[`, `[[]`, `*`, `[*]`, `?`, `[?]`)
+
 // hold takes a session; [errHeld] when another program has it. Where the file cannot
 // be made, or the system knows no locks, it is led without.
 func hold(store, session string) (*holding, error) {
-	path := store + "-session-" + session
+	path := store + heldMark + session
 	f, err := openAlone(path)
 	if errors.Is(err, errHeld) {
 		return nil, fmt.Errorf("session %s: %w", session, err)

@@ -108,6 +108,7 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (*sitting, err
 		_, cerr := db.RemoveIfEmpty(ctx)
 		return nil, storeFailure(errors.Join(err, cerr))
 	}
+	tidy(s.db.Path())
 	s.live = s.db.NewLive(ctx)
 	return s, nil
 }

@@ -3,6 +3,7 @@ package job
 import (
 	"context"
 	"io"
+	"os"
 	"path/filepath"
 	"strings"
 	"testing"
@@ -74,6 +75,7 @@ func TestTakenUp(t *testing.T) {
 		require.NoError(t, s.live.AddEvent(record.Event{SessionID: s.session.ID, At: 20, Kind: eventExchange, Text: exchangeText(acquire.Gate, acquire.Current)}))
 		require.NoError(t, s.live.Flush())
 	}
+	require.NoError(t, os.WriteFile(env.Store+heldMark+"killed-between-two-sweeps", nil, 0o600))
 	s := open()
 	first := s.session.ID
 	begin(s)

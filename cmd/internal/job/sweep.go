@@ -262,9 +262,17 @@ func (w *sweeper) prepare() error {
 	}
 	plan := w.plan()
 	if _, err := acquire.NewRunner(plan); err != nil && !w.typed {
-		return &Failure{Code: ExitFailed, Err: err, Hint: "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"}
+		hint := "gatesill help bench-file shows every key"
+		if strings.Contains(err.Error(), "limit") {
+			hint = "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"
+		}
+		return &Failure{Code: ExitFailed, Err: err, Hint: hint}
 	}
 	w.lock = acquire.NewInterlock(plan)
+	if w.lock.Blind() {
+		return failed("a current meter, a load meter with the value of the load resistor, or a meter at the drain supply (role \"supply\") shows it",
+			"sweep refused: with the meters of this bench it is never seen that a part may be touched")
+	}
 	if again := w.tellCut(); len(again) > 0 {
 		w.rq.Devices = slices.DeleteFunc(w.rq.Devices, func(d string) bool { return slices.Contains(again, d) })
 		w.rq.Devices = append(again, w.rq.Devices...)
