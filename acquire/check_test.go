@@ -278,6 +278,26 @@ func TestInterlockBlind(t *testing.T) {
 	}
 }
 
+// In the one-resistor jig the gate meter is the drain meter too.
+func TestInterlockOfJig(t *testing.T) {
+	for _, x := range []struct {
+		mode record.Mode
+		vg   float64
+		open bool
+	}{{record.Enhancement, 0.01, true}, {record.Enhancement, 2.9, false}, {record.Enhancement, 12, false}, {record.Depletion, 0.01, false}} {
+		p := testPlan(AtSpot)
+		p.Roles, p.Circuit.Circuit, p.PartMode = []string{Gate}, record.Diode, x.mode
+		p.OffVoltage = record.Known(0)
+		l := NewInterlock(p)
+		for i := range 20 {
+			l.Event(Event{Readings: []record.Reading{{Role: Gate, At: 0.1 * float64(i), Value: record.Known(x.vg), Unit: "V"}}})
+		}
+		if l.Open(2) != x.open {
+			t.Errorf("%s at %g V: %v", x.mode, x.vg, l.Missing(2))
+		}
+	}
+}
+
 func TestInterlock(t *testing.T) {
 	for _, k := range kinds {
 		p := testPlan(ByHand)

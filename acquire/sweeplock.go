@@ -11,12 +11,14 @@ import (
 // Interlock says whether a part may be touched, removed or inserted: only when its
 // gate is seen within 0.2 V of the off voltage and its drain current seen below
 // 1 mA, both in fresh readings (younger than two cycles or 0.5 s); or when the
-// gate is seen there and the drain supply is seen to be off. It trusts no memory: what was
-// seen earlier does not count.
+// gate is seen there and the drain supply is seen to be off. With the drain tied to
+// the gate of an enhancement part the gate meter sees both. It trusts no memory:
+// what was seen earlier does not count.
 type Interlock struct {
 	off    float64
 	roles  []string
 	rl     float64
+	tied   bool // drain tied to the gate, of a part that is off at 0 V
 	ears   *ears
 	drain  float64 // s, when the drain supply was read back as off; -Inf never
 	prefix *PrefixCheck
@@ -24,7 +26,7 @@ type Interlock struct {
 
 // NewInterlock makes an interlock for the part and circuit of a plan.
 func NewInterlock(p Plan) *Interlock {
-	l := &Interlock{off: p.Off(), roles: p.Roles, rl: p.Circuit.RL.Float(), ears: newEars(p.Cycle, nil),
+	l := &Interlock{off: p.Off(), roles: p.Roles, rl: p.Circuit.RL.Float(), tied: p.Circuit.Circuit == record.Diode && p.PartMode != record.Depletion, ears: newEars(p.Cycle, nil),
 		drain: math.Inf(-1), prefix: NewPrefixCheck(p.Circuit)}
 	for role, f := range p.Scale {
 		l.prefix.SetScale(role, f)
@@ -65,6 +67,7 @@ func (l *Interlock) Missing(at float64) []string {
 	}
 	id, role := l.current(at)
 	switch {
+	case role == "" && l.tied: // the gate meter is the drain meter: at 0 V nothing flows
 	case role == "":
 		out = append(out, "the drain supply seen off: no meter tells the drain current")
 	case math.IsNaN(id):
@@ -81,7 +84,7 @@ func (l *Interlock) Open(at float64) bool { return len(l.Missing(at)) == 0 }
 // Blind reports that the meters at hand can never show that a part may be touched: a
 // drain meter tells neither a small current nor a supply that is off.
 func (l *Interlock) Blind() bool {
-	return !l.has(Current) && !(l.has(Load) && l.rl > 0) && !l.has(Supply)
+	return !l.tied && !l.has(Current) && !(l.has(Load) && l.rl > 0) && !l.has(Supply)
 }
 
 // current gives the drain current's magnitude (A), the greatest of what the

@@ -75,6 +75,12 @@ func (tx *Tx) StartedSweeps() ([]record.Sweep, error) {
 	return tx.sweeps("started sweeps", false, started+` AND sweep.excluded = 0`)
 }
 
+// GivenUpSweeps lists the sweeps of a lot that were never sealed and given up,
+// without data.
+func (tx *Tx) GivenUpSweeps(lotID string) ([]record.Sweep, error) {
+	return tx.sweeps("sweeps given up", false, started+` AND sweep.excluded = 1 AND device.lot_id = ?`, lotID)
+}
+
 // AddReadings adds readings in the order of their arrival; those of one sweep
 // continue where the ones before ended.
 func (tx *Tx) AddReadings(rs []record.Reading) error {

@@ -229,6 +229,10 @@ func TestLiveSweep(t *testing.T) {
 	update(t, db, func(tx *Tx) {
 		require.NoError(t, tx.StartSweep(&given))
 		require.NoError(t, tx.ExcludeSweep(given.ID, true, "given up"))
+		up, err := tx.GivenUpSweeps(lot.ID)
+		require.NoError(t, err)
+		require.Len(t, up, 1)
+		require.Equal(t, given.ID, up[0].ID)
 		session := record.Session{Name: "S"}
 		require.NoError(t, tx.AddSession(&session))
 		events := []record.Event{{SessionID: session.ID, At: 1, Kind: "zero", Text: "{}"}, {SessionID: session.ID, SweepID: s.ID, At: 0.5, Kind: "limit", Text: "P_D"}}

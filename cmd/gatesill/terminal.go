@@ -5,6 +5,7 @@ import (
 	"bytes"
 	"io"
 	"os"
+	"sync"
 
 	"golang.org/x/term"
 )
@@ -37,7 +38,7 @@ func keyboard() (keys <-chan rune, restore func(), err error) {
 			}
 		}
 	}()
-	return out, func() { close(done); _ = term.Restore(in, before) }, nil
+	return out, sync.OnceFunc(func() { close(done); _ = term.Restore(in, before) }), nil
 }
 
 // returning writes to a terminal in raw mode: every line feed gets its carriage

@@ -173,8 +173,47 @@ func (s *sitting) takeUp(tx *store.Tx, benchID string, now time.Time) error {
 			return err
 		}
 	}
+	return s.stillCut(tx, now)
+}
+
+// stillCut adds the devices whose last sweep was cut short lately and that have not
+// been measured since: the program that took the sweep up may itself have ended
+// before it came to them.
+func (s *sitting) stillCut(tx *store.Tx, now time.Time) error {
+	sweeps, err := tx.Sweeps(s.lot.ID, false)
+	if err != nil {
+		return err
+	}
+	up, err := tx.GivenUpSweeps(s.lot.ID)
+	if err != nil {
+		return err
+	}
+	last := map[string]*record.Sweep{}
+	for _, list := range [][]record.Sweep{sweeps, up} {
+		for i := range list {
+			if sw := &list[i]; last[sw.DeviceID] == nil || last[sw.DeviceID].ID < sw.ID { // by the time in them
+				last[sw.DeviceID] = sw
+			}
+		}
+	}
+	devices, err := tx.Devices(s.lot.ID)
+	if err != nil {
+		return err
+	}
+	for _, d := range devices {
+		sw := last[d.ID]
+		if sw == nil || !sw.Excluded || sw.Why != cutShortWhy || slices.ContainsFunc(s.cut, func(c cutShort) bool { return c.device == d.Name }) {
+			continue
+		}
+		if at, err := time.Parse(time.RFC3339Nano, sw.MeasuredAt); err == nil && now.Sub(at) < resumeWithin {
+			s.cut = append(s.cut, cutShort{d.Name, sw.Points})
+		}
+	}
 	return nil
 }
+
+// cutShortWhy is why a sweep that a crash ended is set aside.
+const cutShortWhy = "cut short: the program ended while it was measured"
 
 // takeUpSweep takes up one sweep, unless another program is measuring it.
 func (s *sitting) takeUpSweep(tx *store.Tx, sw *record.Sweep, benchID string, now time.Time) error {
@@ -263,14 +302,13 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 		}
 		points, _ = acquire.Pair(asCounted(readings, es), pairingOf(b, mode))
 	}
-	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
 		sw.Columns, sw.Marks = acquire.Columns(points)
 		if err := tx.SealSweep(sw); err != nil {
 			return 0, err
 		}
 	}
-	return len(points), tx.ExcludeSweep(sw.ID, true, why)
+	return len(points), tx.ExcludeSweep(sw.ID, true, cutShortWhy)
 }
 
 // elapsed is the time in the session, s.
@@ -427,12 +465,16 @@ func (m shownRanges) ranges(role string) []record.RangeAccuracy {
 	return out
 }
 
-// tellCut says what an earlier program left unfinished, and gives the devices.
-func (s *sitting) tellCut() []string {
-	var names []string
+// tellCut says what an earlier program left unfinished, and gives the devices that are
+// measured again: of those named, or all when none is named.
+func (s *sitting) tellCut(named []string) (again []string) {
 	for _, c := range s.cut {
-		names = append(names, c.device)
-		s.env.talk("device %s: its sweep was cut short after %s; these are kept, set aside, and it is measured again", report.Clean(c.device), count(c.points, "point"))
+		then := "; name it to measure it again"
+		if len(named) == 0 || slices.Contains(named, c.device) {
+			again = append(again, c.device)
+			then = ", and it is measured again"
+		}
+		s.env.talk("device %s: its sweep was cut short after %s; these are kept, set aside%s", report.Clean(c.device), count(c.points, "point"), then)
 	}
-	return names
+	return again
 }

@@ -58,6 +58,7 @@ type sweeper struct {
 	last    map[string]heardLast
 
 	restoreKeys func()
+	restored    bool
 	sim         *rehearsed
 	faults      faultPlan
 	drive       *driver // of the device in the fixture; nil: none
@@ -104,6 +105,7 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 	if err := w.terminal(); err != nil {
 		return err
 	}
+	defer w.restore() // also after a fault of the program; it has been done by then otherwise
 	if w.typed {
 		err = w.typedWork(ctx)
 	} else {
@@ -273,7 +275,7 @@ func (w *sweeper) prepare() error {
 		return failed("a current meter, a load meter with the value of the load resistor, or a meter at the drain supply (role \"supply\") shows it",
 			"sweep refused: with the meters of this bench it is never seen that a part may be touched")
 	}
-	if again := w.tellCut(); len(again) > 0 {
+	if again := w.tellCut(w.rq.Devices); len(again) > 0 {
 		w.rq.Devices = slices.DeleteFunc(w.rq.Devices, func(d string) bool { return slices.Contains(again, d) })
 		w.rq.Devices = append(again, w.rq.Devices...)
 	}
@@ -351,6 +353,10 @@ func (w *sweeper) terminal() error {
 
 // restore gives the terminal back and says once more what was said last.
 func (w *sweeper) restore() error {
+	if w.restored {
+		return nil
+	}
+	w.restored = true
 	err := w.picture.Close()
 	w.restoreKeys()
 	if w.keys != nil {

@@ -60,6 +60,16 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 			}
 		case <-ticker.C:
 			w.breakDown()
+			// What has come is heard before it is asked who is silent: on a busy
+			// machine the loop may be late, and the meters are not.
+			for pending := len(w.events); pending > 0; pending-- {
+				if err := w.take(<-w.events, s); err != nil {
+					return err
+				}
+			}
+			if s.over() {
+				break
+			}
 			s.tick(w.elapsed())
 			if w.drive != nil {
 				_ = w.drive.k.Beat() // a keeper that is gone is told of by its Done

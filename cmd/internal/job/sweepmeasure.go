@@ -247,12 +247,6 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if err != nil {
 		return false, &Failure{Code: ExitFailed, Err: err}
 	}
-	if plan.DrivesGate {
-		if err := w.startDrive(ctx); err != nil {
-			return false, err
-		}
-		defer w.undrive()
-	}
 	direction := record.Up
 	if plan.Mode == acquire.AtSpot {
 		direction = record.Spot
@@ -262,6 +256,13 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	}
 	if err := w.sitting.event("mode", "%s", plan.Mode); err != nil {
 		return false, err
+	}
+	if plan.DrivesGate { // after the store, which may be waited for: from here on the loop must beat
+		if err := w.startDrive(ctx); err != nil {
+			_, ferr := w.finish(ctx, nil, false, direction, "the supplies could not be started")
+			return false, errors.Join(err, ferr)
+		}
+		defer w.undrive()
 	}
 	w.faults.begin(time.Now())
 	id := w.sweep.ID
@@ -274,11 +275,7 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 	if !m.done.Complete {
 		why = m.done.Why
 	}
-	returned := view.Returned
-	if m.repeat {
-		why = "measured again"
-	}
-	sw, err := w.finish(ctx, points, returned, direction, why)
+	sw, err := w.finish(ctx, points, view.Returned, direction, why)
 	if err != nil {
 		return false, err
 	}
@@ -322,8 +319,12 @@ func (w *sweeper) askAgain(ctx context.Context, m *measuring) (again bool, err e
 	if quit {
 		return false, errQuit
 	}
-	if again && len(w.doc.Devices) > 0 {
-		w.doc.Devices = w.doc.Devices[:len(w.doc.Devices)-1]
+	if n := len(w.doc.Devices); again && n > 0 {
+		last := w.doc.Devices[n-1]
+		w.doc.Devices = w.doc.Devices[:n-1]
+		if err := w.db.Update(ctx, func(tx *store.Tx) error { return tx.ExcludeSweep(last.Sweep, true, "measured again") }); err != nil {
+			return false, storeFailure(err)
+		}
 	}
 	return again, nil
 }

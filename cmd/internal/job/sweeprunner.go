@@ -1,6 +1,7 @@
 package job
 
 import (
+	"fmt"
 	"math"
 	"slices"
 	"strings"
@@ -21,10 +22,11 @@ type measuring struct {
 	doneAt  float64
 	held    string  // why nothing goes on, where nobody is there
 	heldAt  float64 // since when
+	had     int     // points taken
+	hadAt   float64 // since when there are so many
 	nudged  float64 // when the simulated hand last turned a little
 	offs    int     // off states still waited for
 	safe    bool    // the off state was told
-	repeat  bool
 	trouble bool
 	reason  *typing // a reason that is being typed
 }
@@ -45,6 +47,14 @@ func (m *measuring) tick(at float64) {
 func (m *measuring) alone(at float64) {
 	v := m.r.View(at)
 	why := first(v.Paused, m.refusal(v))
+	if n := len(v.Points); n != m.had || m.hadAt == 0 {
+		m.had, m.hadAt = n, at
+	}
+	if at-m.hadAt > noPoint {
+		m.held, m.trouble = fmt.Sprintf("no point for %.0f s: %s", at-m.hadAt, v.Instruction), true
+		m.key('s')
+		return
+	}
 	switch {
 	case why == "":
 		m.heldAt, m.held = 0, ""
@@ -69,6 +79,10 @@ func (m *measuring) refusal(v acquire.View) string {
 
 // alonePatience is how long a pause lasts where nobody is there to end it, s.
 const alonePatience = 8.0
+
+// noPoint is how long nothing may be taken where nobody is there, s: longer than any
+// spot settles.
+const noPoint = 1200.0
 
 func (m *measuring) over() bool {
 	if m.done == nil {
