@@ -4,13 +4,11 @@ import (
 	"context"
 	"errors"
 	"fmt"
-	"math"
 	"slices"
 	"strings"
 	"time"
 
 	"gatesill/acquire"
-	"gatesill/acquire/keeper"
 	"gatesill/fit"
 	"gatesill/report"
 	"gatesill/report/screen"
@@ -363,4 +361,3 @@ func (w *sweeper) tellResult(d report.SweptDevice) {
 		}
 	}
 }
-
