@@ -39,7 +39,7 @@ type Timing struct {
 	Integration float64 // s
 	Processing  float64 // s, from the end of integration to the first byte
 	Lag         float64 // s, further delay found by calibration
-	LagU        float64 // s, greatest error of all the above together
+	LagU        float64 // s, greatest error of all the above together; NaN: not known, taken for one cycle of the meter
 	Jitter      float64 // s, greatest spread of arrival (batching of the adapter)
 }
 

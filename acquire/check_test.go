@@ -251,6 +251,33 @@ func TestZeros(t *testing.T) {
 	}
 }
 
+// With some meters it can never be seen that a part may be touched.
+func TestInterlockBlind(t *testing.T) {
+	for _, x := range []struct {
+		roles []string
+		rl    float64
+		blind bool
+	}{
+		{[]string{Gate}, 10, true}, {[]string{Gate, Drain}, 10, true}, {[]string{Gate, Load}, math.NaN(), true},
+		{[]string{Gate, Load}, 10, false}, {[]string{Gate, Current}, math.NaN(), false}, {[]string{Gate, Supply}, math.NaN(), false},
+	} {
+		p := testPlan(ByHand)
+		p.Roles, p.Circuit.RL = x.roles, record.Known(x.rl)
+		l := NewInterlock(p)
+		if l.Blind() != x.blind {
+			t.Errorf("%v, R_L %g: blind %v", x.roles, x.rl, l.Blind())
+		}
+		for i := range 20 { // everything at zero, fresh
+			for _, role := range x.roles {
+				l.Event(Event{Readings: []record.Reading{{Role: role, At: 0.1 * float64(i), Value: record.Known(0), Unit: "V"}}})
+			}
+		}
+		if l.Open(2) == x.blind {
+			t.Errorf("%v, R_L %g: %v", x.roles, x.rl, l.Missing(2))
+		}
+	}
+}
+
 func TestInterlock(t *testing.T) {
 	for _, k := range kinds {
 		p := testPlan(ByHand)
@@ -286,7 +313,7 @@ func TestInterlock(t *testing.T) {
 			}
 			now := 100.0
 			for role, v := range map[string]float64{Gate: x.vg, Current: x.id, Supply: x.supply} {
-				l.Event(Event{Readings: []record.Reading{said(role, now-x.age, v)}})
+				l.Event(Event{Readings: []record.Reading{reads(role, now-x.age, v)}})
 			}
 			if m := strings.Join(l.Missing(now), "; "); l.Open(now) != x.open || !strings.Contains(m, x.want) {
 				t.Errorf("%s, %s: open %v, missing %q", k.name, x.name, l.Open(now), m)
@@ -294,7 +321,7 @@ func TestInterlock(t *testing.T) {
 		}
 	}
 	l := NewInterlock(testPlan(ByHand))
-	l.Event(Event{Readings: []record.Reading{said(Gate, 10, 0), over(Current, 10)}})
+	l.Event(Event{Readings: []record.Reading{reads(Gate, 10, 0), overloaded(Current, 10)}})
 	if m := strings.Join(l.Missing(10.1), "; "); !strings.Contains(m, "over its range") {
 		t.Errorf("overload: missing %q", m)
 	}
@@ -309,9 +336,9 @@ func TestInterlock(t *testing.T) {
 	if l.Open(10.2) {
 		t.Errorf("drain supply on again, open")
 	}
-	held := said(Gate, 11, 0)
+	held := reads(Gate, 11, 0)
 	held.Refused = "held"
-	l.Event(Event{Readings: []record.Reading{held, said(Current, 11, 0)}})
+	l.Event(Event{Readings: []record.Reading{held, reads(Current, 11, 0)}})
 	if m := strings.Join(l.Missing(11.1), "; "); !strings.Contains(m, "held") {
 		t.Errorf("held gate meter: missing %q", m)
 	}

@@ -17,7 +17,7 @@ type PrefixVerdict struct {
 }
 
 // PrefixCheck compares the current meter with the load resistor: V_L / R_L, or
-// (V_DD - V_D) / R_L. A factor of 1000 is a lost prefix, which it refuses and can
+// (V_DD - V_D) / R_L. Three decades between them mean that a prefix got lost, which it refuses and can
 // put right; a few percent are R_L itself, its leads or a burden, which it only
 // says. It compares where both are well above their last digit.
 type PrefixCheck struct {

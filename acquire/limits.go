@@ -271,7 +271,8 @@ func (g *Guard) expected(vg, id float64) []Share {
 	if g.circuit.Circuit == record.Diode {
 		vds = greater(g.last[Gate].max(), vg)
 	}
-	shares := []Share{{"V_GS", "V", vg, g.limits.Vgs}, {"I_D", "A", id, g.limits.ID}, {"P_D", "W", math.Min(product(vds, id), g.mostPower()), g.limits.PD}}
+	shares := append(make([]Share, 0, 4), Share{"V_GS", "V", vg, g.limits.Vgs}, Share{"I_D", "A", id, g.limits.ID},
+		Share{"P_D", "W", math.Min(product(vds, id), g.mostPower()), g.limits.PD})
 	if rl := g.circuit.RL.Float(); rl > 0 && g.circuit.Circuit != record.Fixed {
 		shares = append(shares, Share{"load resistor", "W", id * id * rl, g.circuit.RLRating.Or(0)})
 	}

@@ -8,11 +8,11 @@ import (
 	"gatesill/store/record"
 )
 
-func said(role string, at, x float64) record.Reading {
+func reads(role string, at, x float64) record.Reading {
 	return record.Reading{Role: role, Meter: role, At: at, Value: record.Known(x), Unit: unitOf(role)}
 }
 
-func over(role string, at float64) record.Reading {
+func overloaded(role string, at float64) record.Reading {
 	return record.Reading{Role: role, Meter: role, At: at, State: record.Overload, Unit: unitOf(role)}
 }
 
@@ -24,9 +24,9 @@ func TestPowerLimitOfScenario2(t *testing.T) {
 			want Level
 		}{{0.300, Within}, {0.330, Within}, {0.333, Warn}, {0.400, Warn}, {0.416, Warn}, {0.417, Over}, {0.5, Over}} {
 			g := NewGuard(Limits{Vgs: 10, ID: 2, PD: 5}, record.Condition{Circuit: record.Fixed}, nil)
-			g.Add(said(Gate, 1, 3*sign))
-			g.Add(said(Drain, 1, 12*sign))
-			g.Add(said(Current, 1, c.id*sign))
+			g.Add(reads(Gate, 1, 3*sign))
+			g.Add(reads(Drain, 1, 12*sign))
+			g.Add(reads(Current, 1, c.id*sign))
 			if w := g.Look(); w.Level != c.want {
 				t.Errorf("sign %g, %.0f mA: level %d, want %d (%v)", sign, 1e3*c.id, w.Level, c.want, w.Shares)
 			}
@@ -41,15 +41,15 @@ func TestEveryLimit(t *testing.T) {
 		limits Limits
 		give   func(share float64) []record.Reading
 	}{
-		{"V_GS", Limits{Vgs: 5}, func(s float64) []record.Reading { return []record.Reading{said(Gate, 1, -5*s)} }},
-		{"V_DS", Limits{Vds: 20}, func(s float64) []record.Reading { return []record.Reading{said(Drain, 1, 20*s)} }},
-		{"I_D", Limits{ID: 0.5}, func(s float64) []record.Reading { return []record.Reading{said(Current, 1, -0.5*s)} }},
+		{"V_GS", Limits{Vgs: 5}, func(s float64) []record.Reading { return []record.Reading{reads(Gate, 1, -5*s)} }},
+		{"V_DS", Limits{Vds: 20}, func(s float64) []record.Reading { return []record.Reading{reads(Drain, 1, 20*s)} }},
+		{"I_D", Limits{ID: 0.5}, func(s float64) []record.Reading { return []record.Reading{reads(Current, 1, -0.5*s)} }},
 		{"P_D", Limits{PD: 3}, func(s float64) []record.Reading {
-			return []record.Reading{said(Drain, 1, 10), said(Current, 1, 0.3*s)}
+			return []record.Reading{reads(Drain, 1, 10), reads(Current, 1, 0.3*s)}
 		}},
-		{"temperature", Limits{Temp: 100}, func(s float64) []record.Reading { return []record.Reading{said(Temperature, 1, 100*s)} }},
+		{"temperature", Limits{Temp: 100}, func(s float64) []record.Reading { return []record.Reading{reads(Temperature, 1, 100*s)} }},
 		{"load resistor", Limits{}, func(s float64) []record.Reading {
-			return []record.Reading{said(Current, 1, math.Sqrt(0.5*s))}
+			return []record.Reading{reads(Current, 1, math.Sqrt(0.5*s))}
 		}},
 	} {
 		for _, x := range []struct {
@@ -78,13 +78,13 @@ func TestEveryLimit(t *testing.T) {
 // last two of each.
 func TestPowerIsOnTheSafeSide(t *testing.T) {
 	g := NewGuard(Limits{PD: 5}, record.Condition{}, nil)
-	for _, r := range []record.Reading{said(Drain, 0, 11), said(Current, 0.1, 0.1), said(Drain, 0.4, 9), said(Current, 0.5, 0.3)} {
+	for _, r := range []record.Reading{reads(Drain, 0, 11), reads(Current, 0.1, 0.1), reads(Drain, 0.4, 9), reads(Current, 0.5, 0.3)} {
 		g.Add(r)
 	}
 	if w := g.Look(); math.Abs(w.PD-11*0.3) > 1e-12 {
 		t.Errorf("P_D %g W, want 11 V x 0.3 A", w.PD)
 	}
-	g.Add(said(Drain, 0.8, 9))
+	g.Add(reads(Drain, 0.8, 9))
 	if w := g.Look(); math.Abs(w.PD-9*0.3) > 1e-12 {
 		t.Errorf("P_D %g W, want 9 V x 0.3 A: only the last two count", w.PD)
 	}
@@ -99,16 +99,16 @@ func TestWhereVoltageAndCurrentComeFrom(t *testing.T) {
 		give    []record.Reading
 		vds, id float64
 	}{
-		{"drain meter", load, []record.Reading{said(Drain, 1, 10), said(Load, 1, 3), said(Current, 1, 0.2)}, 10, 0.3},
-		{"V_DD less V_L", load, []record.Reading{said(Load, 1, 3), said(Current, 1, 0.3)}, 9, 0.3},
-		{"read V_DD less V_L", load, []record.Reading{said(Supply, 1, 13), said(Load, 1, 3)}, 10, 0.3},
-		{"V_DD less I R_L", load, []record.Reading{said(Current, 1, 0.2)}, 10, 0.2},
-		{"drain meter alone", load, []record.Reading{said(Drain, 1, 10)}, 10, 0.2},
-		{"prefix lost, load meter tells", load, []record.Reading{said(Load, 1, 3), said(Current, 1, 0.0003)}, 9, 0.3},
-		{"prefix lost, V_DD - V_D tells", load, []record.Reading{said(Supply, 1, 12), said(Drain, 1, 9), said(Current, 1, 0.0003)}, 9, 0.288}, // 1 % of V_DD is left to the two meters
-		{"p-channel", load, []record.Reading{said(Drain, 1, -10), said(Current, 1, -0.2)}, 10, 0.2},
-		{"diode", record.Condition{Circuit: record.Diode, RL: record.Known(10), VDD: record.Known(12)}, []record.Reading{said(Gate, 1, 4)}, 4, 0.8},
-		{"fixed", record.Condition{Circuit: record.Fixed, VDS: record.Known(10)}, []record.Reading{said(Current, 1, 0.2)}, 10, 0.2},
+		{"drain meter", load, []record.Reading{reads(Drain, 1, 10), reads(Load, 1, 3), reads(Current, 1, 0.2)}, 10, 0.3},
+		{"V_DD less V_L", load, []record.Reading{reads(Load, 1, 3), reads(Current, 1, 0.3)}, 9, 0.3},
+		{"read V_DD less V_L", load, []record.Reading{reads(Supply, 1, 13), reads(Load, 1, 3)}, 10, 0.3},
+		{"V_DD less I R_L", load, []record.Reading{reads(Current, 1, 0.2)}, 10, 0.2},
+		{"drain meter alone", load, []record.Reading{reads(Drain, 1, 10)}, 10, 0.2},
+		{"prefix lost, load meter tells", load, []record.Reading{reads(Load, 1, 3), reads(Current, 1, 0.0003)}, 9, 0.3},
+		{"prefix lost, V_DD - V_D tells", load, []record.Reading{reads(Supply, 1, 12), reads(Drain, 1, 9), reads(Current, 1, 0.0003)}, 9, 0.288}, // 1 % of V_DD is left to the two meters
+		{"p-channel", load, []record.Reading{reads(Drain, 1, -10), reads(Current, 1, -0.2)}, 10, 0.2},
+		{"diode", record.Condition{Circuit: record.Diode, RL: record.Known(10), VDD: record.Known(12)}, []record.Reading{reads(Gate, 1, 4)}, 4, 0.8},
+		{"fixed", record.Condition{Circuit: record.Fixed, VDS: record.Known(10)}, []record.Reading{reads(Current, 1, 0.2)}, 10, 0.2},
 	} {
 		g := NewGuard(Limits{}, c.circuit, nil)
 		for _, r := range c.give {
@@ -127,28 +127,28 @@ func TestOverloadIsAboveEveryLimit(t *testing.T) {
 	}{{Gate, Limits{Vgs: 10}}, {Current, Limits{ID: 1}}, {Current, Limits{PD: 5}}, {Drain, Limits{Vds: 30}}, {Drain, Limits{PD: 5}}, {Load, Limits{ID: 1}}, {Temperature, Limits{Temp: 100}}} {
 		g := NewGuard(c.limits, record.Condition{Circuit: record.Load, RL: record.Known(10), VDD: record.Known(12)}, nil)
 		for _, r := range []string{Gate, Current, Drain, Load, Temperature} {
-			g.Add(said(r, 0, 0))
+			g.Add(reads(r, 0, 0))
 		}
 		if w := g.Look(); w.Level != Within {
 			t.Fatalf("%s: at zero level %d", c.role, w.Level)
 		}
-		g.Add(over(c.role, 1))
+		g.Add(overloaded(c.role, 1))
 		if w := g.Look(); w.Level != Over {
 			t.Errorf("%s overloaded, %+v: level %d", c.role, c.limits, w.Level)
 		}
-		g.Add(said(c.role, 2, 0))
+		g.Add(reads(c.role, 2, 0))
 		if w := g.Look(); w.Level != Within {
 			t.Errorf("%s back in range: level %d", c.role, w.Level)
 		}
 	}
 	// A meter that shows one overload whenever it changes its range.
 	g := NewGuard(Limits{ID: 1}, record.Condition{}, map[string]int{Current: 2})
-	g.Add(said(Current, 0, 0.1))
-	g.Add(over(Current, 1))
+	g.Add(reads(Current, 0, 0.1))
+	g.Add(overloaded(Current, 1))
 	if w := g.Look(); w.Level != Within {
 		t.Errorf("one overload of two: level %d", w.Level)
 	}
-	g.Add(over(Current, 2))
+	g.Add(overloaded(Current, 2))
 	if w := g.Look(); w.Level != Over {
 		t.Errorf("two overloads: level %d", w.Level)
 	}
@@ -156,9 +156,9 @@ func TestOverloadIsAboveEveryLimit(t *testing.T) {
 
 func TestNoNumberChangesNothing(t *testing.T) {
 	g := NewGuard(Limits{ID: 1}, record.Condition{}, nil)
-	g.Add(said(Current, 0, 0.9))
-	g.Add(said(Current, 1, 0.9))
-	held := said(Current, 2, 0.1)
+	g.Add(reads(Current, 0, 0.9))
+	g.Add(reads(Current, 1, 0.9))
+	held := reads(Current, 2, 0.1)
 	held.Refused = "held"
 	g.Add(held)
 	g.Add(held)

@@ -100,6 +100,17 @@ func Listen(ctx context.Context, sources []Source, start time.Time, emit func(Ev
 	return errors.Join(failed...)
 }
 
+// Handler gives what [Listen] hears one line with, for a caller that brings bytes and
+// their times itself, as [port.Keep] would: a bench in simulated time. Only setting an
+// instrument up waits in real time.
+func Handler(s Source, start time.Time, emit func(Event)) (port.Handler, error) {
+	l, _, err := newListener(s, start, emit)
+	if err != nil {
+		return nil, err
+	}
+	return l, nil
+}
+
 // listener hears one line; it is the handler that package port calls.
 type listener struct {
 	Source

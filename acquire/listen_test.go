@@ -54,19 +54,13 @@ func TestListenTimesGoForward(t *testing.T) {
 }
 
 func TestListenWithoutWireTime(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "fs9721"})
-	r.c.byteTime = 0 // a socket
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "fs9721"})
 	r.bytes(1000, r.frame("fs9721", volts(3.012)))
 	r.expect("socket", "1000.0ms gate=3.012V/0.001")
 }
 
 func TestListenRefusals(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "fs9922"})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "fs9922"})
 	hold := volts(3.012)
 	hold.Hold = true
 	low := volts(3.1)
@@ -110,10 +104,7 @@ func splitBar(s string) []string {
 }
 
 func TestListenRepeats(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "es519xx-4000"})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "es519xx-4000"})
 	for i, x := range []float64{3.012, 3.013, 3.013} {
 		f := r.frame("es519xx-4000", volts(x))
 		r.bytes(float64(400*i), f)
@@ -131,11 +122,8 @@ func TestListenRepeats(t *testing.T) {
 }
 
 func TestListenColumns(t *testing.T) {
-	r := newRig(t, Source{Speaks: "text", Settings: "115200 8N1", Options: meter.Options{Unit: "V,mA,V"}, Columns: []SourceColumn{
+	r := onSocket(t, Source{Speaks: "text", Settings: "115200 8N1", Options: meter.Options{Unit: "V,mA,V"}, Columns: []SourceColumn{
 		{1, Gate, "adc", "V"}, {2, Current, "adc", "A"}, {3, Load, "adc", "V"}}})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
 	r.text(5, "012,250.3,10.02\r\n") // its beginning was before the opening
 	r.text(10, "3.012,250.3,10.02\r\n")
 	r.text(20, "3.012,250.3,10.02\r\n")
@@ -223,6 +211,7 @@ func TestListenSourcesAreChecked(t *testing.T) {
 // Three recorded logs played at once through real lines: emit is never called by
 // two goroutines, and Listen ends with the logs.
 func TestListenLogs(t *testing.T) {
+	t.Parallel()
 	dir := t.TempDir()
 	var sources []Source
 	const frames = 40

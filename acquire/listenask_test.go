@@ -21,10 +21,7 @@ func (r *rig) sent(what, want string) {
 
 // One question at a time: the next when the reply is there and its time has come.
 func TestListenAsks(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "polled-ascii"})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "polled-ascii"})
 	r.sent("at once", "D")
 	f := r.frame("polled-ascii", volts(3.012))
 	r.idle(100)
@@ -38,10 +35,7 @@ func TestListenAsks(t *testing.T) {
 }
 
 func TestListenEvery(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "scpi", Every: 0.5, Options: meter.Options{Unit: "V"}})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "scpi", Every: 0.5, Options: meter.Options{Unit: "V"}})
 	r.sent("at once", "READ?/")
 	r.text(40, "READ?\r\n+3.01200000E+00\r")
 	r.text(41, "\n")
@@ -64,10 +58,7 @@ func TestListenEvery(t *testing.T) {
 // No reply: told after a second, then what comes late is dropped, then asked again
 // after clearing the instrument.
 func TestListenTimeOut(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "scpi"})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "scpi"})
 	r.sent("first", "READ?/")
 	r.idle(990)
 	r.expect("not yet", "")
@@ -213,10 +204,7 @@ func TestListenWriteFails(t *testing.T) {
 
 // FETCh? may bring one conversion twice.
 func TestListenFetch(t *testing.T) {
-	r := newRig(t, Source{Columns: gate, Speaks: "scpi", Ask: "FETCh?"})
-	r.c.byteTime = 0
-	r.open(0)
-	r.said()
+	r := onSocket(t, Source{Columns: gate, Speaks: "scpi", Ask: "FETCh?"})
 	for i, at := range []float64{100, 500, 900, 1000, 1300} {
 		x := 1.0
 		if i == 0 {

@@ -76,6 +76,16 @@ func newRig(t *testing.T, s Source) *rig {
 	return r
 }
 
+// onSocket is a rig whose line is open and takes no time on the wire.
+func onSocket(t *testing.T, s Source) *rig {
+	t.Helper()
+	r := newRig(t, s)
+	r.c.byteTime = 0
+	r.open(0)
+	r.said()
+	return r
+}
+
 func (r *rig) at(ms float64) time.Time {
 	at := listenZero.Add(time.Duration(ms * float64(time.Millisecond)))
 	if at.After(r.c.clock) {

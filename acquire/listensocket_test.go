@@ -15,6 +15,7 @@ import (
 // A meter behind a socket that hangs up after some readings: it is set up and asked
 // again, and no question is sent before the reply to the one before.
 func TestListenSocket(t *testing.T) {
+	t.Parallel()
 	server, err := net.Listen("tcp", "127.0.0.1:0")
 	if err != nil {
 		t.Skip(err)

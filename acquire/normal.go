@@ -5,7 +5,6 @@ import "math"
 // normal are the sums of a linear fit by least squares.
 type normal struct {
 	k  int
-	n  int
 	m  []float64 // k by k
 	y  []float64
 	yy float64
@@ -24,7 +23,6 @@ func (s *normal) add(basis []float64, v float64) {
 		s.y[i] += a * v
 	}
 	s.yy += v * v
-	s.n++
 }
 
 // solve gives the coefficients, the inverse of the matrix of the sums (k by k) and the sum of

@@ -86,7 +86,7 @@ type instant struct {
 func NewPairer(p Pairing) *Pairer {
 	orElse(&p.Tolerance, tolerance)
 	orElse(&p.SlopeMax, slopeMax)
-	q := &Pairer{p: p, channels: map[string]*channel{}, first: math.NaN(), newest: math.Inf(-1), done: math.Inf(-1), last: math.NaN(), frozenRun: math.NaN()}
+	q := &Pairer{p: p, channels: map[string]*channel{}, first: math.NaN(), newest: math.Inf(-1), done: math.Inf(-1), last: math.NaN(), frozenRun: math.NaN(), state: judgement{t: math.Inf(-1)}}
 	for role := range p.Timing {
 		q.channel(role)
 	}

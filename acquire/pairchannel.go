@@ -79,8 +79,8 @@ func (c *channel) cycle() float64 {
 // unsure is the greatest error of the instant of a conversion, s. Batching makes a
 // frame late by 0 to Jitter; half of it is taken off by [channel.instant].
 func (c *channel) unsure(cycle float64) float64 {
-	if !c.known {
-		return cycle
+	if !c.known || math.IsNaN(c.timing.LagU) {
+		return cycle + c.timing.Jitter/2
 	}
 	return c.timing.LagU + c.timing.Jitter/2
 }

@@ -2,6 +2,7 @@ package acquire
 
 import (
 	"math"
+	"sort"
 
 	"gatesill/store/record"
 )
@@ -15,7 +16,7 @@ const (
 	jerky      = 8
 	jerkyShare = 0.25 // of the greater rate: the lesser one is below
 	// unseen is the share of the way moved in a cycle by which a swing too fast for the
-	// second difference may still bend it, see TestInterpolatedBound.
+	// second difference may still bend it, see TestBoundsHold.
 	unseen = 0.05
 	// peakRate is by how much the rate within an interval may be over the greatest mean
 	// rate of the intervals around.
@@ -99,12 +100,11 @@ func (c *channel) on(i instant) (conversion, bool) {
 	if !c.sameLine(i.pace) {
 		return conversion{}, false
 	}
-	for k := c.from(i.c.t); k < len(c.convs) && c.convs[k].at <= i.c.at; k++ {
-		if c.convs[k].at == i.c.at && c.convs[k].number() {
-			return c.convs[k], true
-		}
+	k := sort.Search(len(c.convs), func(k int) bool { return c.convs[k].at >= i.c.at })
+	if k == len(c.convs) || c.convs[k].at != i.c.at || !c.convs[k].number() {
+		return conversion{}, false
 	}
-	return conversion{}, false
+	return c.convs[k], true
 }
 
 // line is the straight line through two conversions at t.
@@ -126,7 +126,7 @@ func line(a, b *conversion, t float64) float64 {
 // pace, over which a current that grows e-fold in V_0 is averaged. The last count of
 // either display is not in it: it belongs to the readings, paired or not.
 //
-// Checked: TestInterpolatedBound, in simulation; no real meter was at hand.
+// Checked: TestBoundsHold, in simulation; no real meter was at hand.
 func (q *Pairer) movingBound(i instant, g *channel, k int) float64 {
 	around := 2.5 * math.Max(g.convs[k].cycle, i.c.cycle)
 	var rate, change, before, beforeDt float64

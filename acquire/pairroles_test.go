@@ -154,6 +154,7 @@ func TestColumnsDecimals(t *testing.T) {
 // The points do not depend on when they are taken, nor on the order in which meters
 // are heard within half a second; nor does a list make other points than the stream.
 func TestSamePointsHoweverDealt(t *testing.T) {
+	fewer(t)
 	rapid.Check(t, func(rt *rapid.T) {
 		g := rand.New(rand.NewPCG(rapid.Uint64().Draw(rt, "seed"), 7))
 		b := rapid.SampledFrom(benches[:2]).Draw(rt, "bench")

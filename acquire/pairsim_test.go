@@ -181,7 +181,7 @@ func threeFast(g *rand.Rand) []pairMeter {
 // simulation is what a bench said, and when it measured that.
 type simulation struct {
 	readings []record.Reading
-	truth    map[string]map[float64]float64 // instant by role and arrival
+	truth    map[string][][2]float64 // arrival, rising, and instant by role
 	pairing  Pairing
 	path     path
 	meters   map[string]pairMeter
@@ -189,9 +189,8 @@ type simulation struct {
 
 // simulate lets the meters read along the path.
 func simulate(g *rand.Rand, p path, meters []pairMeter) *simulation {
-	s := &simulation{truth: map[string]map[float64]float64{}, pairing: Pairing{Timing: map[string]Timing{}, Free: true}, path: p, meters: map[string]pairMeter{}}
+	s := &simulation{truth: map[string][][2]float64{}, pairing: Pairing{Timing: map[string]Timing{}, Free: true}, path: p, meters: map[string]pairMeter{}}
 	for _, m := range meters {
-		s.truth[m.role] = map[float64]float64{}
 		s.pairing.Timing[m.role] = m.timing
 		s.meters[m.role] = m
 		s.run(g, m)
@@ -230,7 +229,7 @@ func (s *simulation) run(g *rand.Rand, m pairMeter) {
 			r.Value = record.Known(rounded(n*digit, digit))
 		}
 		r.Raw = fmt.Appendf(nil, "%s %s", r.Value, r.State)
-		s.truth[m.role][at] = t
+		s.truth[m.role] = append(s.truth[m.role], [2]float64{at, t})
 		s.readings = append(s.readings, r)
 	}
 }
@@ -240,10 +239,10 @@ func (s *simulation) run(g *rand.Rand, m pairMeter) {
 func (s *simulation) readAt(p Point) float64 {
 	t := s.pairing.Timing[Current]
 	want := p.At + t.Processing + t.Integration/2 + t.Lag + t.Jitter/2
-	for at, instant := range s.truth[Current] {
-		if math.Abs(at-want) < 1e-9 {
-			return instant
-		}
+	truth := s.truth[Current]
+	i, _ := slices.BinarySearchFunc(truth, want-1e-9, func(x [2]float64, at float64) int { return cmp.Compare(x[0], at) })
+	if i == len(truth) || truth[i][0] > want+1e-9 {
+		return math.NaN()
 	}
-	return math.NaN()
+	return truth[i][1]
 }

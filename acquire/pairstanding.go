@@ -7,6 +7,9 @@ import (
 	"gatesill/store/record"
 )
 
+// coarsely is the share of the window within which one instant is judged like the one before.
+const coarsely = 1.0 / 64
+
 // judgement is what was found at one instant.
 type judgement struct {
 	t       float64 // s, the instant
@@ -113,8 +116,9 @@ func (s span) steady(from, to float64) bool {
 // scatter is the standard deviation of single conversions about a smooth course: the
 // median of the differences d of neighbours over 0.6745 √2 (normal distribution).
 func (s span) scatter() float64 {
-	d := make([]float64, 0, len(s.convs))
-	for i := 1; i < len(s.convs); i++ {
+	step := max(1, len(s.convs)/200) // 200 tell it well enough
+	d := make([]float64, 0, len(s.convs)/step+1)
+	for i := 1; i < len(s.convs); i += step {
 		d = append(d, math.Abs(s.convs[i].v-s.convs[i-1].v))
 	}
 	slices.Sort(d)
@@ -182,6 +186,12 @@ func (q *Pairer) gateStands(from, to, apart float64) (s span, extent float64, wh
 func (q *Pairer) judge(i instant) {
 	to := i.c.t
 	w := q.window(to)
+	if to-q.state.t < w*coarsely && to >= q.state.t {
+		if !q.state.stands {
+			q.hold(i) // fast meters: what was so a moment ago still is
+		}
+		return
+	}
 	from := to - w
 	j := judgement{t: to}
 	frozen := q.isFrozen(to)
@@ -193,9 +203,7 @@ func (q *Pairer) judge(i instant) {
 	j.why = why
 	if j.stands = why == ""; !j.stands {
 		q.release(from)
-		if q.p.Free && i.c.number() && i.pace.role != Gate {
-			q.held = append(q.held, i)
-		}
+		q.hold(i)
 		q.state = j
 		return
 	}
@@ -236,6 +244,13 @@ func (q *Pairer) judge(i instant) {
 		q.points = append(q.points, q.settledPoint(i, gate, spans, extent, from))
 	}
 	q.state = j
+}
+
+// hold keeps an instant on the move until it is known what came after it.
+func (q *Pairer) hold(i instant) {
+	if q.p.Free && i.c.number() && i.pace.role != Gate {
+		q.held = append(q.held, i)
+	}
 }
 
 // settledPoint is the means over a window: of the gate over all of it, of the others

@@ -2,16 +2,18 @@ package acquire
 
 import (
 	"math"
+
+	"gatesill/store/record"
 )
 
-// Settle says when a value that drifts while a part warms up is taken: when it has all but
-// come to rest, or after a time that is the same for all parts. The zero value of every
+// Settle says when a value that drifts while a part warms up may be taken: when it has all
+// but come to rest, or after a time that is the same for all parts. The zero value of every
 // number stands for what is written beside it.
 type Settle struct {
-	Slope  float64 // unit/s, of the line through the window, either way; 0: 0.5 mV in 10 s
-	Window float64 // s; 0: 30 s
-	After  float64 // s, from the first reading; above 0: taken then, whatever the slope
-	Digit  float64 // one count of the display, unit; 0: not known
+	Slope  float64    // unit/s, of the line through the window, either way; 0: 0.5 mV in 10 s
+	Window float64    // s; 0: 30 s
+	After  record.Num // s, from the start; known: then, whatever the slope
+	Digit  float64    // one count of the display, unit; 0: not known
 }
 
 const (
@@ -19,6 +21,7 @@ const (
 	settleWindow = 30.0        // s
 	settleLeast  = 6           // readings in the window
 	settleHole   = 0.2         // of the window without a reading, at most
+	bucket       = 0.25        // s, of readings kept as one mean, so that fast meters do not make the series long
 	aheadFrom    = 45.0        // s, before which no end value is estimated
 	aheadLeast   = 20          // readings
 	aheadTaus    = 2.0         // time constants of more than this many times the time seen are not told
@@ -28,70 +31,78 @@ const (
 
 // Settling watches one value of one part.
 type Settling struct {
-	s      Settle
-	t, v   []float64
-	taken  Accepted
-	isDone bool
+	s     Settle
+	began float64   // s
+	t, v  []float64 // means within a bucket
+	from  float64   // s, of the first reading in the last of them
+	last  float64   // s, of the last one
+	in    float64   // readings in it
+	slope float64   // unit/s; NaN not known
 }
 
-// Accepted is the reading that was accepted.
-type Accepted struct {
-	After float64 // s, from the first reading
-	Value float64 // as it was read
-	Slope float64 // unit/s, of the window before it; NaN: not enough readings
-	Blind bool    // the drift allowed within the window is less than one count of the display: the rule saw nothing
-}
-
-// Start begins with a part.
-func (s Settle) Start() *Settling {
+// Start begins with a part, at a time, s.
+func (s Settle) Start(at float64) *Settling {
 	orElse(&s.Slope, settleSlope)
 	orElse(&s.Window, settleWindow)
-	return &Settling{s: s}
+	return &Settling{s: s, began: at, slope: math.NaN()}
 }
 
-// Add takes the value read at elapsed time at, s; what is not a number or not later than
-// the one before is left out.
+// Add takes the value read at a time, s; what is not a number or not later than the one
+// before is left out.
 func (g *Settling) Add(at, v float64) {
 	n := len(g.t)
-	if math.IsNaN(v) || math.IsInf(v, 0) || math.IsNaN(at) || n > 0 && !(at > g.t[n-1]) {
+	if math.IsNaN(v) || math.IsInf(v, 0) || math.IsNaN(at) || n > 0 && !(at > g.last) {
 		return
 	}
-	g.t, g.v = append(g.t, at), append(g.v, v)
-	if g.isDone {
-		return
+	g.last = at
+	if n > 0 && at-g.from < bucket {
+		g.in++
+		g.t[n-1] += (at - g.t[n-1]) / g.in
+		g.v[n-1] += (v - g.v[n-1]) / g.in
+	} else {
+		g.t, g.v = append(g.t, at), append(g.v, v)
+		g.from, g.in = at, 1
 	}
-	slope, ok := g.slope()
-	after := at - g.t[0]
-	if g.s.After > 0 && after >= g.s.After || !(g.s.After > 0) && ok && math.Abs(slope) <= g.s.Slope {
-		g.isDone = true
-		g.taken = Accepted{After: after, Value: v, Slope: slope, Blind: g.s.Digit > g.s.Slope*g.s.Window}
-	}
+	g.slope = g.line()
 }
 
-// Accepted gives the reading that was accepted, once there is one; it stays.
-func (g *Settling) Accepted() (Accepted, bool) { return g.taken, g.isDone }
+// Settled reports whether the value may be taken at a time, s. By the slope it may no
+// longer be when the drift begins anew.
+func (g *Settling) Settled(at float64) bool {
+	if after, fixed := g.s.After.Get(); fixed {
+		return at-g.began >= after
+	}
+	return math.Abs(g.slope) <= g.s.Slope
+}
 
-// slope is that of the line of least squares through the last window, unit/s; false while
-// the window is not full or has holes.
-func (g *Settling) slope() (float64, bool) {
+// Slope is that of the value over the last window, unit/s; NaN while the window is not
+// full or has holes.
+func (g *Settling) Slope() float64 { return g.slope }
+
+// Blind reports whether the drift that is allowed within the window is less than one count
+// of the display: a value that seems to rest says little then.
+func (g *Settling) Blind() bool { return !g.s.After.IsKnown() && g.s.Digit > g.s.Slope*g.s.Window }
+
+// line gives the slope of the line of least squares through the last window.
+func (g *Settling) line() float64 {
 	n := len(g.t)
 	end := g.t[n-1]
 	k := n - 1
 	for k > 0 && g.t[k-1] >= end-g.s.Window*(1+1e-9) {
 		k--
 		if g.t[k+1]-g.t[k] > settleHole*g.s.Window {
-			return math.NaN(), false
+			return math.NaN()
 		}
 	}
 	if n-k < settleLeast || end-g.t[k] < (1-settleHole)*g.s.Window || end-g.t[0] < g.s.Window*(1-1e-9) {
-		return math.NaN(), false
+		return math.NaN()
 	}
 	var sums normal
 	for i := k; i < n; i++ {
 		sums.add([]float64{1, g.t[i] - end}, g.v[i]-g.v[n-1])
 	}
 	x, _, _ := sums.solve()
-	return x[1], !math.IsNaN(x[1])
+	return x[1]
 }
 
 // Ahead is where a drifting value would end. It is for showing how long the wait is worth, and
@@ -123,7 +134,7 @@ func (g *Settling) Ahead() (Ahead, bool) {
 	}
 	t, v, digit := g.thinned()
 	whole, ok := fitDecay(t, v, digit)
-	if !ok || whole.tau > aheadTaus*(t[len(t)-1]-t[0]) || whole.second > secondF {
+	if !ok || whole.tau > aheadTaus*(t[len(t)-1]-t[0]) || whole.second(t, v, digit) > secondF {
 		return Ahead{}, false
 	}
 	k := 0
@@ -158,7 +169,6 @@ func (g *Settling) thinned() (t, v []float64, digit float64) {
 type decay struct {
 	end, u, tau float64
 	left        float64 // sum of squares
-	second      float64 // F by which a second exponential, slower, improves it
 }
 
 // bestDecay fits exponentials of tau and of so many times tau over a grid of tau and then
@@ -185,7 +195,7 @@ func bestDecay(t, v []float64, times ...float64) decay {
 	return best
 }
 
-// fitDecay fits one exponential, and asks whether a second one would fit better.
+// fitDecay fits one exponential.
 func fitDecay(t, v []float64, digit float64) (decay, bool) {
 	if len(t) < 6 {
 		return decay{}, false
@@ -204,10 +214,17 @@ func fitDecay(t, v []float64, digit float64) (decay, bool) {
 	_, inverse, _ := full.solve()
 	variance := math.Max(best.left/float64(len(t)-3), digit*digit/12)
 	best.u = math.Sqrt(variance * inverse[0])
-	if two := bestDecay(t, v, 1, slower); two.left < best.left {
-		best.second = (best.left - two.left) / math.Max(two.left/float64(len(t)-4), digit*digit/12)
-	}
 	return best, best.u >= 0
+}
+
+// second is by how much a second exponential, slower, improves the fit of one: F with one
+// degree of freedom, 0 not at all.
+func (d decay) second(t, v []float64, digit float64) float64 {
+	two := bestDecay(t, v, 1, slower)
+	if !(two.left < d.left) {
+		return 0
+	}
+	return (d.left - two.left) / math.Max(two.left/float64(len(t)-4), digit*digit/12)
 }
 
 // decaySums are the sums for an end value and exponentials of so many times tau.

@@ -71,6 +71,7 @@ func (s *sim) complete(within float64) {
 }
 
 func TestSweepsOfEveryKind(t *testing.T) {
+	t.Parallel()
 	for _, m := range []Mode{Driven, ByHand} {
 		for _, k := range kinds {
 			t.Run(string(m)+" "+k.name, func(t *testing.T) {
@@ -101,6 +102,29 @@ func TestSweepFromTheOffVoltage(t *testing.T) {
 		s.complete(0.0015)
 		if first := s.taken[0].Point; math.Abs(first.Vg) > nearOff {
 			t.Errorf("%s: first point at %g V, want the off state, which shows leakage", m, first.Vg)
+		}
+	}
+}
+
+// Fast and slow meters, quiet and noisy ones; parts that are steep, and parts that
+// are flat.
+func TestSweepsOnOtherBenches(t *testing.T) {
+	for _, m := range []Mode{Driven, ByHand} {
+		for _, x := range []struct{ pace, noise, beta, idle float64 }{
+			{0.1, 0.3, 1.9, 0.25}, {2, 0.3, 1.9, 0.25}, {1, 2, 1.9, 0.25}, {1, 0.3, 30, 0.3}, {1, 0.3, 0.1, 0.05},
+		} {
+			p := testPlan(m)
+			p.From, p.Idle = record.Known(2.6), record.Known(x.idle)
+			d := testDevice()
+			d.beta = x.beta
+			s := newSim(t, p, d)
+			for _, k := range s.meters {
+				k.cycle *= x.pace
+				k.noise = x.noise
+			}
+			s.start().run(600)
+			t.Logf("%s, %+v", m, x)
+			s.complete(0.0015 + 0.0005*x.noise)
 		}
 	}
 }
@@ -186,6 +210,7 @@ func TestFixedWait(t *testing.T) {
 }
 
 func TestFreeSweep(t *testing.T) {
+	t.Parallel()
 	for _, k := range kinds {
 		p := testPlan(Free)
 		p.Channel, p.PartMode, p.OffVoltage = k.channel, k.mode, record.Known(k.off)

@@ -27,6 +27,7 @@ func begun(t *testing.T, p Plan) *sim {
 // What goes wrong in a driven sweep brings the device to its off state, in time and
 // with the reason.
 func TestFaultsOfADrivenSweep(t *testing.T) {
+	t.Parallel()
 	for _, c := range []struct {
 		name   string
 		fault  func(s *sim)
@@ -134,7 +135,7 @@ func TestSilentMeterByHand(t *testing.T) {
 		}
 	}
 	s.run(4)
-	// The meter speaks every 0.25 s: stale after max(2 T, 0.5 s), silent after max(3 T, 1 s).
+	// The meter speaks every 0.25 s: stale after max(2 T, 0.5 s), silent after max(3.5 T, 1 s).
 	if stale < 0.2 || stale > 0.65 || paused < 0.7 || paused > 1.2 {
 		t.Errorf("stale after %.2f s, paused after %.2f s", stale, paused)
 	}
@@ -151,6 +152,47 @@ func TestSilentMeterByHand(t *testing.T) {
 	if len(s.taken) < n+5 {
 		t.Errorf("%d points before, %d after: the sweep was to go on", n, len(s.taken))
 	}
+}
+
+// Scenario 7: at 0.45 s a frame a meter that was switched off is stale after two
+// frames, 0.9 s, and silent after three and a half: a change to a lower range costs
+// two conversions.
+func TestStaleAfterTwoFrames(t *testing.T) {
+	e := newEars(nil, nil)
+	for i := range 10 {
+		e.hear(reads(Current, 0.45*float64(i), 0.2))
+	}
+	last := 0.45 * 9
+	for _, c := range []struct {
+		age           float64
+		stale, silent bool
+	}{{0.4, false, false}, {0.89, false, false}, {0.91, true, false}, {1.57, true, false}, {1.58, true, true}} {
+		if stale, silent := math.IsNaN(e.number(Current, last+c.age)), e.isSilent(Current, last+c.age); stale != c.stale || silent != c.silent {
+			t.Errorf("%.2f s old: stale %v, silent %v", c.age, stale, silent)
+		}
+	}
+	// What is held is no number, at once.
+	held := reads(Current, last+0.45, 0.2)
+	held.Refused = "held"
+	e.hear(held)
+	if x := e.number(Current, last+0.46); !math.IsNaN(x) {
+		t.Errorf("held reading counts as %g A", x)
+	}
+}
+
+// A line that was lost by hand pauses until it is open and heard again.
+func TestLostLineByHand(t *testing.T) {
+	s := begun(t, testPlan(ByHand))
+	s.meter(Current).dead = true
+	s.do(s.r.Event(Event{At: s.now, Line: Current, Role: Current, Lost: true, Err: errors.New("unplugged")}))
+	if v := s.r.View(s.now); !strings.Contains(v.Paused, "unplugged") || !s.heard("stop: turn the gate back") {
+		t.Errorf("paused %q, said %q", v.Paused, s.said)
+	}
+	s.run(3)
+	s.meter(Current).dead = false
+	s.do(s.r.Event(Event{At: s.now, Line: Current, Role: Current, Opened: true}))
+	s.run(300)
+	s.complete(0.0015)
 }
 
 // By hand a limit can only be called, and ends the sweep.

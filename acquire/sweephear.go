@@ -30,8 +30,9 @@ type voice struct {
 	ranging      bool // the last frame was an overload, or the first on another range
 	number       bool // the last frame was a number that counts
 	frames       int
-	count        int // numbers since the last call of mark
-	gaps         []float64
+	count        int                // numbers since the last call of mark
+	gaps         []float64          // s, between the last frames
+	gap          float64            // s, their median; NaN none yet
 	same         int                // equal numbers in a row
 	others       map[string]float64 // what the other roles said when they began to be equal
 	against      int                // of these, the last ones during which another role had moved away
@@ -49,7 +50,7 @@ func (e *ears) begin(roles []string, at float64) {
 func (e *ears) of(role string) *voice {
 	v := e.voices[role]
 	if v == nil {
-		v = &voice{value: math.NaN(), digit: math.NaN(), at: math.Inf(-1), heard: math.Inf(-1), any: math.Inf(-1)}
+		v = &voice{value: math.NaN(), digit: math.NaN(), gap: math.NaN(), at: math.Inf(-1), heard: math.Inf(-1), any: math.Inf(-1)}
 		e.voices[role] = v
 	}
 	return v
@@ -64,6 +65,9 @@ func (e *ears) hear(r record.Reading) {
 		if len(v.gaps) > 9 {
 			v.gaps = v.gaps[1:]
 		}
+		sorted := slices.Clone(v.gaps)
+		slices.Sort(sorted)
+		v.gap = sorted[len(sorted)/2]
 	}
 	v.frames++
 	v.any = math.Max(v.any, r.At)
@@ -100,13 +104,7 @@ func (e *ears) period(role string) float64 {
 	if t := e.cycle[role]; t > 0 {
 		return t
 	}
-	v := e.of(role)
-	if len(v.gaps) == 0 {
-		return math.NaN()
-	}
-	g := slices.Clone(v.gaps)
-	slices.Sort(g)
-	return g[len(g)/2]
+	return e.of(role).gap
 }
 
 // number gives the last number of a role, NaN when there is none or it is not

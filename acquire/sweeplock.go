@@ -78,6 +78,12 @@ func (l *Interlock) Missing(at float64) []string {
 // Open reports whether a part may be touched.
 func (l *Interlock) Open(at float64) bool { return len(l.Missing(at)) == 0 }
 
+// Blind reports that the meters at hand can never show that a part may be touched: a
+// drain meter tells neither a small current nor a supply that is off.
+func (l *Interlock) Blind() bool {
+	return !l.has(Current) && !(l.has(Load) && l.rl > 0) && !l.has(Supply)
+}
+
 // current gives the drain current's magnitude (A), the greatest of what the
 // meters say, and the role it is missing from.
 func (l *Interlock) current(at float64) (float64, string) {

@@ -11,16 +11,25 @@ import (
 	"pgregory.net/rapid"
 )
 
+// fewer makes the property tests of a test try a quarter of what they try otherwise, but
+// for long runs.
+func fewer(t *testing.T) {
+	if os.Getenv("GATESILL_LONG") != "" {
+		return
+	}
+	checks := flag.Lookup("rapid.checks")
+	before := checks.Value.String()
+	if err := flag.Set("rapid.checks", "25"); err != nil {
+		t.Fatal(err)
+	}
+	t.Cleanup(func() { flag.Set("rapid.checks", before) })
+}
+
 // Whatever happens: no gate voltage beyond its limit, no step that was predicted to
 // go too far, nothing after the end, off as the last order (all checked in sim.do);
 // and a healthy device never sees more than its limits while the meters are well.
 func TestWhateverHappens(t *testing.T) {
-	if os.Getenv("GATESILL_LONG") == "" { // 0.03 s a check
-		checks := flag.Lookup("rapid.checks")
-		before := checks.Value.String()
-		flag.Set("rapid.checks", "25")
-		defer flag.Set("rapid.checks", before)
-	}
+	fewer(t) // 0.03 s a check
 	rapid.Check(t, func(rt *rapid.T) {
 		k := kinds[rapid.IntRange(0, 3).Draw(rt, "kind")]
 		m := rapid.SampledFrom([]Mode{Driven, Driven, ByHand, Free, AtSpot}).Draw(rt, "mode")
@@ -45,6 +54,11 @@ func TestWhateverHappens(t *testing.T) {
 		d.n = rapid.Float64Range(1, 2).Draw(rt, "n")
 		s := newSim(t, p, d)
 		s.fail = func(format string, a ...any) { rt.Fatalf(format, a...) }
+		noise := rapid.SampledFrom([]float64{0.3, 1, 4}).Draw(rt, "noise")
+		pace := rapid.SampledFrom([]float64{1, 0.1, 2}).Draw(rt, "pace")
+		for _, x := range s.meters {
+			x.noise, x.cycle = noise, x.cycle*pace
+		}
 		s.start()
 		healthy := true
 		for range rapid.IntRange(0, 4).Draw(rt, "happenings") {

@@ -10,6 +10,7 @@ import (
 
 // From the readings that were kept, a sweep stands where it stood.
 func TestReplayGivesTheSamePoints(t *testing.T) {
+	t.Parallel()
 	for _, m := range []Mode{Driven, ByHand, Free} {
 		p := testPlan(m)
 		p.From = record.Known(2.7)
@@ -57,6 +58,7 @@ func (s *sim) whole() {
 // After a crash a sweep goes on: by hand where it was, driven from the off state back
 // up to where it was, with no point lost and none taken twice.
 func TestSweepGoesOnAfterACrash(t *testing.T) {
+	t.Parallel()
 	for _, m := range []Mode{Driven, ByHand} {
 		for _, k := range kinds {
 			p := testPlan(m)

@@ -38,8 +38,8 @@ func (d *simDevice) at(u, vds float64) float64 {
 	return is*(f(u-vt)-f(u-vt-d.n*vds)) + d.leak
 }
 
-// simMeter is one meter: it samples at its cycle and speaks after its lag.
-type simMeter struct {
+// handMeter is one meter: it samples at its cycle and speaks after its lag.
+type handMeter struct {
 	role    string
 	digit   float64
 	cycle   float64
@@ -65,7 +65,7 @@ type sim struct {
 	dev      *simDevice
 	vdd, rl  float64
 	circuit  record.Circuit
-	meters   []*simMeter
+	meters   []*handMeter
 	rng      *rand.Rand
 	now      float64
 	sign     float64
@@ -76,7 +76,6 @@ type sim struct {
 	drainOn  bool
 	open     bool // the gate supply does not follow
 	hand     bool
-	hasty    bool // stands still too short
 	stopTurn float64
 	lookAt   float64
 
@@ -106,7 +105,7 @@ func newSim(t *testing.T, p Plan, d *simDevice) *sim {
 	cycles := map[string]float64{Gate: 0.30, Current: 0.25, Load: 0.35, Drain: 0.40, Supply: 0.5, Temperature: 1}
 	digits := map[string]float64{Gate: 1e-3, Current: 1e-5, Load: 1e-3, Drain: 1e-2, Supply: 1e-2, Temperature: 0.1}
 	for i, role := range p.Roles {
-		s.meters = append(s.meters, &simMeter{role: role, digit: digits[role], cycle: cycles[role], lag: 0.1, noise: 0.3, top: math.Inf(1), next: 0.03 * float64(i+1), factor: 1})
+		s.meters = append(s.meters, &handMeter{role: role, digit: digits[role], cycle: cycles[role], lag: 0.1, noise: 0.3, top: math.Inf(1), next: 0.03 * float64(i+1), factor: 1})
 	}
 	s.u = s.sign * p.Off()
 	s.set = s.u
@@ -124,7 +123,7 @@ func (s *sim) start() *sim {
 	return s
 }
 
-func (s *sim) meter(role string) *simMeter {
+func (s *sim) meter(role string) *handMeter {
 	for _, m := range s.meters {
 		if m.role == role {
 			return m
@@ -157,7 +156,7 @@ func (s *sim) solveNow() (id, vds float64) {
 	if s.circuit == record.Diode {
 		// gate and drain tied: u follows
 		lo, hi := 0.0, s.supply
-		for range 26 {
+		for range 20 { // to some 15 uV, far below what a meter shows
 			m := (lo + hi) / 2
 			if s.dev.at(m, m) < (s.supply-m)/s.rl {
 				lo = m
@@ -172,7 +171,7 @@ func (s *sim) solveNow() (id, vds float64) {
 		return s.dev.at(s.u, s.supply), s.supply
 	}
 	lo, hi := 0.0, s.supply
-	for range 26 {
+	for range 20 { // to some 15 uV, far below what a meter shows
 		m := (lo + hi) / 2
 		if s.dev.at(s.u, m) < (s.supply-m)/s.rl {
 			lo = m
@@ -229,7 +228,7 @@ func (s *sim) step() {
 	}
 }
 
-func (s *sim) sample(m *simMeter, x float64) {
+func (s *sim) sample(m *handMeter, x float64) {
 	if s.now >= m.next {
 		m.next += m.cycle
 		if !m.frozen || m.last == 0 {

@@ -1,39 +1,22 @@
 package acquire
 
-import "math"
-
-// The rule by which a gate voltage at one current counts as settled: over the last
-// 30 s it moved at no more than 0.5 mV per 10 s.
-const (
-	slopeSpan  = 30.0 // s
-	slopeLimit = 0.5e-3 / 10
-	bucket     = 0.25 // s, of readings kept as one
+import (
+	"fmt"
+	"math"
 )
 
-// sample is a mean of gate voltages that came within one bucket of time.
-type sample struct {
-	t, v float64 // s; V, in the direction that turns on, brought to the wanted current
-	n    int
-}
+// noAhead is an end value that cannot be told.
+var noAhead = Ahead{Value: math.NaN(), U: math.NaN(), Tau: math.NaN()}
 
 // soak is how a spot settles.
 type soak struct {
-	series []sample
+	series *Settling
 	heard  float64 // s, of the last gate reading in it
 	latest *Point  // the last plateau
-	slope  float64 // V/s over the last slopeSpan; NaN not known
-	end    Extrapolation
+	end    Ahead
 	endAt  float64
 	in     int // readings in a row near the current, on the way there
 	told   bool
-}
-
-// Extrapolation is where a gate voltage that settles exponentially will end, as
-// far as can be seen now. It is shown and never stored.
-type Extrapolation struct {
-	End float64 // V, sign of the part; NaN not to be had
-	U   float64 // V, standard uncertainty
-	Tau float64 // s
 }
 
 // bring begins the way to the current of a spot.
@@ -102,8 +85,9 @@ func (r *Runner) bringing() {
 			r.nearLimit("V_GS")
 			return
 		}
-		step, why := r.reach(math.Min(far, r.end()-u), at)
+		step, _ := r.reach(math.Min(far, r.end()-u), at)
 		if step = whole(step, 0.001); step < 0.001 {
+			var why string
 			if step, why = r.reach(0.001, math.Inf(1)); step < 0.001-1e-9 {
 				r.nearLimit(why)
 				return
@@ -173,12 +157,20 @@ func (r *Runner) trim(di float64) float64 {
 // settle begins the wait at the current.
 func (r *Runner) settle() {
 	r.enter(phSoak)
-	r.soak = soak{heard: r.ears.of(Gate).at, slope: math.NaN(), end: Extrapolation{End: math.NaN(), U: math.NaN()}}
+	gate := r.ears.of(Gate)
+	rule := Settle{After: r.plan.Settle}
+	if gate.digit > 0 {
+		rule.Digit = gate.digit
+	}
+	r.soak = soak{series: rule.Start(r.now), heard: gate.at, end: noAhead}
 	r.ripe, r.arrivedAt = false, r.now
 	r.fresh()
 	if !r.plan.driven() {
 		r.say("%s", r.instruction())
 		r.sound(SoundAttention)
+	}
+	if r.soak.series.Blind() {
+		r.warn(fmt.Sprintf("one count of the gate meter, %s, is more than the drift that counts as settled: that it stands still says little, a fixed wait says more", show(gate.digit, "V")))
 	}
 }
 
@@ -198,12 +190,13 @@ func (r *Runner) soaking(points []Point) {
 			// What the current is off by is in the gate voltage too.
 			u -= math.Max(-0.02, math.Min(0.02, (id-at)/g))
 		}
-		s.add(v.at, u)
-		s.slope = s.slopeOver(slopeSpan)
+		s.series.Add(v.at, u)
 		if v.at >= s.endAt+1 {
-			s.endAt = v.at
-			s.end = extrapolate(s.series)
-			s.end.End *= r.sign
+			s.endAt, s.end = v.at, noAhead
+			if a, ok := s.series.Ahead(); ok && a.U < 0.010 {
+				a.Value *= r.sign
+				s.end = a
+			}
 		}
 	}
 	for _, p := range points {
@@ -216,7 +209,7 @@ func (r *Runner) soaking(points []Point) {
 		return
 	}
 	if !r.plan.Settle.IsKnown() {
-		r.ripe = math.Abs(s.slope) <= slopeLimit
+		r.ripe = s.series.Settled(r.now)
 	}
 	if s.latest == nil || !r.ripe && !r.wanted || !r.all() {
 		return
@@ -273,117 +266,4 @@ func (r *Runner) retrim(id, at float64) bool {
 	s.latest = nil
 	r.setGate(r.target + d)
 	return true
-}
-
-// add puts a reading into the series.
-func (s *soak) add(t, v float64) {
-	if n := len(s.series); n > 0 && t-s.series[n-1].t < bucket {
-		b := &s.series[n-1]
-		b.v = (b.v*float64(b.n) + v) / float64(b.n+1)
-		b.n++ // its time stays where it began: half a bucket is nothing here
-		return
-	}
-	s.series = append(s.series, sample{t, v, 1})
-}
-
-// slopeOver gives the slope of the last span of the series, V/s, by least squares;
-// NaN when it is shorter or has fewer than ten entries.
-func (s *soak) slopeOver(span float64) float64 {
-	n := len(s.series)
-	if n == 0 {
-		return math.NaN()
-	}
-	end := s.series[n-1].t
-	i := n - 1
-	for i > 0 && s.series[i-1].t >= end-span-1e-9 {
-		i--
-	}
-	part := s.series[i:]
-	if len(part) < 10 || end-part[0].t < 0.93*span {
-		return math.NaN()
-	}
-	var t, v float64
-	for _, p := range part {
-		t, v = t+p.t, v+p.v
-	}
-	t, v = t/float64(len(part)), v/float64(len(part))
-	var tv, tt float64
-	for _, p := range part {
-		tv += (p.t - t) * (p.v - v)
-		tt += (p.t - t) * (p.t - t)
-	}
-	return tv / tt
-}
-
-// extrapolate fits v = end + b exp(-t/tau) to the series.
-//
-// Uses: all of it, from 8 entries and 10 s on. Result: U is the standard
-// uncertainty of the end from the scatter about the curve, tau being fitted as
-// well; NaN where the series does not bend enough to say (U above 10 mV).
-// Source: least squares with one non-linear parameter searched over its range
-// (textbook); that one time constant describes a part warming up is common
-// practice, no source.
-// Checked: TestExtrapolation, on a settling curve with a known end.
-func extrapolate(series []sample) Extrapolation {
-	none := Extrapolation{End: math.NaN(), U: math.NaN(), Tau: math.NaN()}
-	n := len(series)
-	if n < 8 || series[n-1].t-series[0].t < 10 {
-		return none
-	}
-	t0, span := series[0].t, series[n-1].t-series[0].t
-	best, lo, hi := math.Inf(1), 2.0, 4*span
-	var end, b, tau float64
-	try := func(x float64) float64 {
-		var sy, se, see, sye float64
-		for _, p := range series {
-			e := math.Exp(-(p.t - t0) / x)
-			sy, se, see, sye = sy+p.v, se+e, see+e*e, sye+p.v*e
-		}
-		m := float64(n)
-		den := m*see - se*se
-		if den <= 0 {
-			return math.Inf(1)
-		}
-		bb := (m*sye - sy*se) / den
-		aa := (sy - bb*se) / m
-		var ss float64
-		for _, p := range series {
-			d := p.v - aa - bb*math.Exp(-(p.t-t0)/x)
-			ss += d * d
-		}
-		if ss < best {
-			best, end, b, tau = ss, aa, bb, x
-		}
-		return ss
-	}
-	const steps = 48
-	for k := 0; k <= steps; k++ {
-		try(lo * math.Pow(hi/lo, float64(k)/steps))
-	}
-	for w := math.Pow(hi/lo, 1.0/steps); w > 1.001; w = math.Sqrt(w) {
-		c := tau
-		try(c * w)
-		try(c / w)
-	}
-	// Standard uncertainty of the end, from the normal equations of all three.
-	var m [3][3]float64
-	for _, p := range series {
-		e := math.Exp(-(p.t - t0) / tau)
-		g := [3]float64{1, e, b * e * (p.t - t0) / (tau * tau)}
-		for i := range g {
-			for j := range g {
-				m[i][j] += g[i] * g[j]
-			}
-		}
-	}
-	minor := m[1][1]*m[2][2] - m[1][2]*m[2][1]
-	det := m[0][0]*minor - m[0][1]*(m[1][0]*m[2][2]-m[1][2]*m[2][0]) + m[0][2]*(m[1][0]*m[2][1]-m[1][1]*m[2][0])
-	if !(det > 0) {
-		return none
-	}
-	u := math.Sqrt(best / float64(n-3) * minor / det)
-	if !(u < 0.010) || tau >= 0.99*hi {
-		return none
-	}
-	return Extrapolation{End: end, U: u, Tau: tau}
 }

@@ -1,7 +1,6 @@
 package acquire
 
 import (
-	"encoding/csv"
 	"math"
 	"os"
 	"strconv"
@@ -10,27 +9,6 @@ import (
 
 	"gatesill/store/record"
 )
-
-// settleCurve reads testdata/scenarios/s5_settle.csv: invented data of a part that
-// warms up, once a second; it ends at 3.3591 V.
-func settleCurve(t *testing.T) (ts, vs []float64) {
-	t.Helper()
-	f, err := os.Open("../testdata/scenarios/s5_settle.csv")
-	if err != nil {
-		t.Fatal(err)
-	}
-	defer f.Close()
-	rows, err := csv.NewReader(f).ReadAll()
-	if err != nil || len(rows) != 302 {
-		t.Fatalf("%d rows, %v", len(rows), err)
-	}
-	for _, r := range rows[1:] {
-		at, _ := strconv.ParseFloat(r[0], 64)
-		v, _ := strconv.ParseFloat(r[1], 64)
-		ts, vs = append(ts, at), append(vs, v)
-	}
-	return ts, vs
-}
 
 // jig is the one-resistor jig with one voltmeter: the circuit sets the current.
 func jig(settle record.Num) Plan {
@@ -44,6 +22,11 @@ func jig(settle record.Num) Plan {
 	return p
 }
 
+// gateSays is a reading of the gate meter.
+func gateSays(at, v, digit float64) Event {
+	return Event{At: at, Role: Gate, Readings: []record.Reading{{Role: Gate, Meter: "m", At: at, Value: record.Known(v), Digit: record.Known(digit), Raw: []byte(strconv.FormatFloat(v, 'f', 3, 64))}}}
+}
+
 // play hands a curve to a spot at one reading a second, after some at zero, and
 // gives the point, when it came, and what the view showed at some times.
 func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken, float64) {
@@ -51,9 +34,6 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 	r, err := NewRunner(p)
 	if err != nil {
 		t.Fatal(err)
-	}
-	reading := func(at, v float64) Event {
-		return Event{At: at, Role: Gate, Readings: []record.Reading{{Role: Gate, Meter: "m", At: at, Value: record.Known(v), Digit: record.Known(0.001), Raw: []byte(strconv.FormatFloat(v, 'f', 3, 64))}}}
 	}
 	const before = 5
 	var got *Taken
@@ -66,10 +46,10 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 		}
 	}
 	for i := range before {
-		look(r.Event(reading(float64(i), 0)))
+		look(r.Event(gateSays(float64(i), 0, 0.001)))
 	}
 	for i, x := range ts {
-		look(r.Event(reading(x+before, vs[i])))
+		look(r.Event(gateSays(x+before, vs[i], 0.001)))
 		for k := 1; k < 5; k++ {
 			look(r.Tick(x + before + 0.2*float64(k)))
 		}
@@ -85,12 +65,12 @@ func play(t *testing.T, p Plan, ts, vs []float64, show map[float64]*View) (Taken
 }
 
 // Scenario 5: the rule of 0.5 mV per 10 s over 30 s accepts at 147 s, at 3.362 V; the end
-// extrapolated from the first 60 s is 3.3606 V, from 90 s 3.3589 V +- 0.4 mV.
+// extrapolated from the first 60 s is 3.3606 V, from 90 s 3.3589 V.
 func TestSettlingOfScenario5(t *testing.T) {
-	ts, vs := settleCurve(t)
+	ts, vs := warmUp(t)
 	at60, at90 := new(View), new(View)
 	k, at := play(t, jig(record.Num{}), ts, vs, map[float64]*View{60: at60, 90: at90})
-	t.Logf("accepted at %.1f s: %.4f V; end from 60 s %.4f ± %.4f V, from 90 s %.4f ± %.4f V", at, k.Point.Vg, at60.End.End, at60.End.U, at90.End.End, at90.End.U)
+	t.Logf("accepted at %.1f s: %.4f V; end from 60 s %.4f ± %.4f V, from 90 s %.4f ± %.4f V", at, k.Point.Vg, at60.End.Value, at60.End.U, at90.End.Value, at90.End.U)
 	// The runner's clock begins with the second reading above zero, and a plateau ends up to a window earlier.
 	if at < 145 || at > 152 {
 		t.Errorf("accepted at %.1f s, want 147 s", at)
@@ -98,11 +78,14 @@ func TestSettlingOfScenario5(t *testing.T) {
 	if math.Abs(k.Point.Vg-3.362) > 0.0015 || k.Early {
 		t.Errorf("accepted %.4f V, early %v, want 3.362 V within a count", k.Point.Vg, k.Early)
 	}
-	if math.Abs(at60.End.End-3.3606) > 0.0018 || math.Abs(at90.End.End-3.3589) > 0.0008 {
-		t.Errorf("ends %.4f and %.4f V, want 3.3606 and 3.3589 V within two of their uncertainties", at60.End.End, at90.End.End)
+	if math.Abs(at60.End.Value-3.3606) > 0.0018 || math.Abs(at90.End.Value-3.3589) > 0.0008 {
+		t.Errorf("ends %.4f and %.4f V, want 3.3606 and 3.3589 V within two of their uncertainties", at60.End.Value, at90.End.Value)
 	}
-	if u := at90.End.U; u < 0.0002 || u > 0.0008 {
-		t.Errorf("uncertainty from 90 s %.2f mV, want about 0.4 mV", 1e3*u)
+	// What the scatter makes of it is 0.9 and 0.4 mV; that it need not be an exponential comes on top.
+	for _, v := range []*View{at60, at90} {
+		if u := v.End.U; u < 0.0002 || u > 0.005 || math.Abs(v.End.Value-3.3591) > 2*u {
+			t.Errorf("end %.4f ± %.4f V, made with 3.3591 V", v.End.Value, u)
+		}
 	}
 	if !strings.Contains(at90.Instruction, "seems to end at 3.35") {
 		t.Errorf("the view says %q", at90.Instruction)
@@ -112,7 +95,7 @@ func TestSettlingOfScenario5(t *testing.T) {
 // The same wait for every part: 10 s gives 3.402 V, 30 s 3.386 V (scenario 5); the
 // plateau is looked for after that.
 func TestFixedWaitOfScenario5(t *testing.T) {
-	ts, vs := settleCurve(t)
+	ts, vs := warmUp(t)
 	for _, c := range []struct{ wait, want float64 }{{10, 3.402}, {30, 3.386}} {
 		k, at := play(t, jig(record.Known(c.wait)), ts, vs, nil)
 		// At one reading a second the means are of the 5 s to 9 s after the wait.
@@ -122,33 +105,14 @@ func TestFixedWaitOfScenario5(t *testing.T) {
 	}
 }
 
-func TestExtrapolation(t *testing.T) {
-	var series []sample
-	for x := 0.0; x < 80; x++ {
-		v := 2 + 0.05*math.Exp(-x/40)
-		series = append(series, sample{x, math.Round(v*1e4) / 1e4, 1})
-	}
-	if e := extrapolate(series); math.Abs(e.End-2) > 3*e.U || e.U > 0.001 || math.Abs(e.Tau-40) > 4 {
-		t.Errorf("end %.5f ± %.5f V, tau %.1f s; made with 2 V and 40 s", e.End, e.U, e.Tau)
-	}
-	if e := extrapolate(series[:8]); !math.IsNaN(e.End) {
-		t.Errorf("8 s of a 40 s settling gave an end of %.4f V", e.End)
-	}
-	for i := range series {
-		series[i].v = 2 - 0.001*series[i].t // no bend at all
-	}
-	if e := extrapolate(series); !math.IsNaN(e.End) {
-		t.Errorf("a straight line ends at %.3f V ± %.4f V", e.End, e.U)
-	}
-}
-
 // A spot at a current: by hand and driven, of every kind of part, while the part
 // warms up.
 func TestSpotAtACurrent(t *testing.T) {
+	t.Parallel()
 	for _, drives := range []bool{false, true} {
 		for i, k := range kinds {
-			if !drives && (i == 1 || i == 2) {
-				continue // a hand is slow
+			if (i == 1 || i == 2) && os.Getenv("GATESILL_LONG") == "" {
+				continue // the other two have every sign and both off states; a hand is slow
 			}
 			p := testPlan(AtSpot)
 			p.Channel, p.PartMode, p.OffVoltage = k.channel, k.mode, record.Known(k.off)
@@ -224,5 +188,31 @@ func TestSpotThatIsNotReached(t *testing.T) {
 	s := newSim(t, p, testDevice()).start().run(200)
 	if s.done == nil || s.done.Complete || !strings.Contains(s.done.Why, "gate voltage") || len(s.taken) != 0 {
 		t.Errorf("%+v, %d points", s.done, len(s.taken))
+	}
+}
+
+// A display that is too coarse for the rule is told as the wait begins, and not where the
+// wait is fixed.
+func TestSpotOnACoarseDisplay(t *testing.T) {
+	for _, c := range []struct {
+		digit float64
+		wait  record.Num
+		want  bool
+	}{{0.01, record.Num{}, true}, {0.01, record.Known(20), false}, {0.001, record.Num{}, false}} {
+		r, err := NewRunner(jig(c.wait))
+		if err != nil {
+			t.Fatal(err)
+		}
+		for i := range 10 {
+			v := 0.0
+			if i >= 5 {
+				v = 3.4
+			}
+			r.Event(gateSays(float64(i), v, c.digit))
+		}
+		got := strings.Contains(strings.Join(r.View(10).Warnings, "\n"), "one count of the gate meter")
+		if r.phase != phSoak || got != c.want {
+			t.Errorf("a count of %g V, wait %v: phase %d, warned %v", c.digit, c.wait, r.phase, got)
+		}
 	}
 }

@@ -86,13 +86,14 @@ func (r *Runner) ripen() {
 		return
 	}
 	since := r.arrivedAt
-	switch {
-	case r.phase == phSoak:
-		since = r.phaseAt // from reaching the current, for every part alike
-	case r.plan.driven() && !math.IsNaN(since):
+	if r.plan.driven() && !math.IsNaN(since) {
 		since = r.setAt // the moment is known better than by its meter
 	}
-	if r.now-since >= settle { // false while it has not arrived
+	over := r.now-since >= settle // false while it has not arrived
+	if r.phase == phSoak {
+		over = r.soak.series.Settled(r.now) // from reaching the current, for every part alike
+	}
+	if over {
 		r.ripe, r.soak.latest = true, nil
 		r.fresh()
 	}
@@ -366,7 +367,9 @@ func (r *Runner) follow(points []Point) {
 			r.turn(why, true)
 			return
 		}
-	} else if r.seen && now > top+0.1 && r.now > r.slowAt+5 {
+	} else if r.slowAt == 0 && r.idNow() >= r.floor() {
+		r.slowAt = r.now // points come late, the first ones above all
+	} else if r.slowAt > 0 && now > top+0.1 && r.now > r.slowAt+5 {
 		r.slowAt = r.now
 		r.say("turn slower: nothing can be taken at this rate")
 		r.sound(SoundAttention)

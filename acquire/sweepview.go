@@ -34,10 +34,10 @@ type View struct {
 	Shares      []Share // of the limits that are known
 	Level       Level
 	Warnings    []string
-	Paused      string // why nothing is taken; "" it runs
-	Fix         string // what [KeyFix] would put right; "" nothing
-	Beep        Sound  // of the last call
-	End         Extrapolation
+	Paused      string  // why nothing is taken; "" it runs
+	Fix         string  // what [KeyFix] would put right; "" nothing
+	Beep        Sound   // of the last call
+	End         Ahead   // of a spot that settles: where it would end; shown only, NaN not known
 	Slope       float64 // V/s, of a spot that settles; NaN otherwise
 	Over        bool
 	Complete    bool
@@ -52,7 +52,7 @@ func (r *Runner) View(at float64) View {
 	v := View{Instruction: r.instruction(), Said: r.said, Waiting: nan, Target: nan, Latest: map[string]Shown{},
 		Points: slices.Clone(r.points), Returned: r.back && r.plan.Mode != AtSpot, ID: r.idNow(), PD: w.PD, Shares: w.Shares, Level: w.Level,
 		Warnings: slices.Clone(r.warnings), Paused: r.paused, Beep: r.beep,
-		End: Extrapolation{End: nan, U: nan, Tau: nan}, Slope: nan, Over: r.phase == phOver, Complete: r.complete, Why: r.why}
+		End: noAhead, Slope: nan, Over: r.phase == phOver, Complete: r.complete, Why: r.why}
 	if s, ok := w.Worst(); ok && w.Level > Within {
 		v.Warnings = append(v.Warnings, s.String())
 	}
@@ -87,7 +87,7 @@ func (r *Runner) View(at float64) View {
 			v.Waiting = math.Max(0, s-(now-since))
 		}
 	case phSoak:
-		v.End, v.Slope = r.soak.end, r.soak.slope*r.sign
+		v.End, v.Slope = r.soak.end, r.soak.series.Slope()*r.sign
 		if s, ok := r.plan.Settle.Get(); ok {
 			v.Waiting = math.Max(0, s-(now-r.phaseAt))
 		}
@@ -208,8 +208,8 @@ func (r *Runner) settling() string {
 	if s, ok := r.plan.Settle.Get(); ok && !r.ripe {
 		return fmt.Sprintf("wait %.0f s", math.Ceil(math.Max(0, s-(r.now-r.phaseAt))))
 	}
-	if e := r.soak.end; !math.IsNaN(e.End) {
-		return fmt.Sprintf("wait until it has settled; it seems to end at %s ± %s", show(e.End, "V"), show(e.U, "V"))
+	if e := r.soak.end; !math.IsNaN(e.Value) {
+		return fmt.Sprintf("wait until it has settled; it seems to end at %s ± %s", show(e.Value, "V"), show(e.U, "V"))
 	}
 	return "wait until it has settled"
 }

@@ -203,7 +203,7 @@ var inputInfos = [inputCount]struct{ name, unit, kind, shape string }{
 	InGateStep:      {"gate display step", "V", "B", rectangular},
 	InCurrentNoise:  {"current noise and counts", "%", "B", rectangular},
 	InReading:       {"curve between the points", "V", "B", normal},
-	InPairing:       {"pairing of the meters", "V", "B", rectangular},
+	InPairing:       {"pairing of the meters", "V", "B", normal},
 	InSweeps:        {"difference of the sweeps", "", "A", normal},
 	InGateOffset:    {"gate meter offset", "V", "B", rectangular},
 	InCurrentOffset: {"offset", "A", "B", rectangular},

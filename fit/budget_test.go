@@ -229,13 +229,13 @@ func TestRecordedTemperature(t *testing.T) {
 }
 
 // Meters that do not read at one instant: the greater bound of the two points around a crossing,
-// rectangular, is one more input to every gate voltage and to nothing else; a bound that is not there or
+// as three standard uncertainties, is one more input to every gate voltage and to nothing else; a bound that is not there or
 // not known leaves every digit as it was.
 func TestPairing(t *testing.T) {
 	line := func(q Quantity) (u float64) {
 		for _, x := range q.Budget.Lines {
 			if x.Input == InPairing {
-				if u != 0 || x.Shape != rectangular || x.C*x.C != 1 || x.Name == "" {
+				if u != 0 || x.Shape != normal || x.C*x.C != 1 || x.Name == "" {
 					t.Errorf("line %+v", x)
 				}
 				u = x.U
@@ -269,11 +269,11 @@ func TestPairing(t *testing.T) {
 			if !q.Ok() || q.Budget == nil {
 				continue
 			}
-			near(t, name+" "+string(k)+" input", line(q), bound/math.Sqrt(3), 1e-12)
+			near(t, name+" "+string(k)+" input", line(q), bound/3, 1e-12)
 			near(t, name+" "+string(k)+" value", q.Value, p.Value, 0)
-			near(t, name+" "+string(k)+" U", q.U, math.Hypot(p.U, bound/math.Sqrt(3)), 1e-12)
+			near(t, name+" "+string(k)+" U", q.U, math.Hypot(p.U, bound/3), 1e-12)
 			if !math.IsNaN(p.UAbsolute) {
-				near(t, name+" "+string(k)+" U absolute", q.UAbsolute, math.Hypot(p.UAbsolute, bound/math.Sqrt(3)), 1e-12)
+				near(t, name+" "+string(k)+" U absolute", q.UAbsolute, math.Hypot(p.UAbsolute, bound/3), 1e-12)
 			}
 		}
 		for _, k := range []Key{KeyBeta, KeyGmIdle} {

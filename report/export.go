@@ -156,6 +156,7 @@ func (c columnsDoc) MarshalJSON() ([]byte, error) {
 var heads = map[record.Quantity]string{
 	record.VG: "vg_V", record.ID: "id_A", record.VL: "vl_V", record.VD: "vd_V", record.VDD: "vdd_V",
 	record.IG: "ig_A", record.GM: "gm_S", record.Temp: "temp_degC", record.T: "t_s",
+	record.PairBound: "pair_bound_V", record.Settled: "settled",
 }
 
 func headOf(q record.Quantity) string {

@@ -44,11 +44,14 @@ type Limits struct {
 	Temp record.Num // deg C
 }
 
+// Keyboard is the line of a meter that sends nothing: a person types what it shows.
+const Keyboard = "keyboard"
+
 // Line is where a meter's readings come in and how it is spoken to. Meters with
 // the same Path share one line: each is a column of what comes in on it, and
 // what only one of them states holds for all.
 type Line struct {
-	Path      string   // stable by-id or by-path name, or host:port; "" no live readings
+	Path      string   // stable by-id or by-path name, host:port, or [Keyboard]; "" no live readings
 	Speaks    string   // name of the format of its frames or replies
 	Settings  string   // "2400 8N1"; "" as usual for the format
 	Column    int      // of a line or reply with several values, from 1
@@ -61,7 +64,8 @@ type Line struct {
 	Every       record.Num // s between two questions
 	Integration record.Num // s over which it measures
 	Processing  record.Num // s from the end of integration to the first byte
-	LagU        record.Num // s, greatest error of the two
+	Lag         record.Num // s, further delay behind the gate meter, as gatesill sweep --find-lag finds it
+	LagU        record.Num // s, greatest error of the three
 }
 
 // Supply is a supply output that the program may drive.

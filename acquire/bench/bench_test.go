@@ -45,7 +45,7 @@ func TestExample(t *testing.T) {
 	require.Len(t, b.Supplies, 2)
 	require.Equal(t, record.Known(12), b.Supplies[1].Voltage)
 	require.Equal(t, 2, b.Supplies[1].Output)
-	require.Equal(t, "OUT2:0", b.Supplies[1].Commands["off"])
+	require.Equal(t, "OFF 2", b.Supplies[1].Commands["off"])
 	require.NoError(t, b.Live())
 	require.Len(t, b.Overdue("2027-03-03"), 2)
 	require.Empty(t, b.Overdue("2027-03-02"))

@@ -129,6 +129,8 @@ func (b *Bench) Live() error {
 			p.fail(key+".line", "missing: %s comes in on no line", l.Speaks)
 		case l.Path != "" && l.Speaks == "":
 			p.fail(key+".speaks", "missing: how does it speak? known are %s", strings.Join(formatNames(), ", "))
+		case l.Path == Keyboard && l.Speaks != "text":
+			p.fail(key+".speaks", "%q, but what is typed is text", l.Speaks)
 		case l.Path != "":
 			n++
 		}

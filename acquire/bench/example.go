@@ -35,7 +35,8 @@ speaks = "fs9721"          # format of what it sends, for live readings
 settings = "2400 8N1"      # of a serial line; without it, as is usual for the format
 integration = "100 ms"     # how long it measures for one reading
 processing = "50 ms"       # from the end of that to the first byte
-lag_u = "30 ms"            # greatest error of the two together
+lag = "0 ms"               # further delay, where gatesill sweep --find-lag found one
+lag_u = "30 ms"            # greatest error of these three together
 isolated = true            # its input is not tied to the computer's ground
 calibrated = 2026-03-02
 due = 2027-03-02
@@ -82,6 +83,8 @@ line = "/dev/serial/by-id/usb-columns"
 column = 2
 unit = "degC"
 
+# A meter that sends nothing is read by you: line = "keyboard", speaks = "text", column = 1.
+
 [[supply]]
 drives = "gate"            # gate or drain; only for sweeps that the program drives
 name = "supply 1"
@@ -104,11 +107,11 @@ current_limit = "1 A"
 voltage = "12 V"           # when it is on
 
   [supply.commands]        # only where they are not the usual ones; %g is the value
-  set = "VSET2:%g"
-  limit = "ISET2:%g"
-  on = "OUT2:1"
-  off = "OUT2:0"
-  read = "VOUT2?"
+  set = "U2 %g"
+  limit = "I2 %g"
+  on = "ON 2"
+  off = "OFF 2"
+  read = "U2?"
   identify = "*IDN?"
   errors = "SYST:ERR?"
 `

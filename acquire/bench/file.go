@@ -51,6 +51,7 @@ type meterKeys struct {
 	Every       any         `toml:"every"`
 	Integration any         `toml:"integration"`
 	Processing  any         `toml:"processing"`
+	Lag         any         `toml:"lag"`
 	LagU        any         `toml:"lag_u"`
 	Isolated    *bool       `toml:"isolated"`
 	Calibrated  any         `toml:"calibrated"`

@@ -99,6 +99,7 @@ func (p *parser) line(key string, m *meterKeys, unit string) Line {
 		Every:       p.above(key+".every", m.Every, "s"),
 		Integration: p.notBelow(key+".integration", m.Integration, "s"),
 		Processing:  p.notBelow(key+".processing", m.Processing, "s"),
+		Lag:         p.num(key+".lag", m.Lag, "s"),
 		LagU:        p.notBelow(key+".lag_u", m.LagU, "s"),
 	}
 	if m.Column != nil {

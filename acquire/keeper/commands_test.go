@@ -3,6 +3,7 @@ package keeper
 import (
 	"encoding/json"
 	"errors"
+	"fmt"
 	"math"
 	"strings"
 	"testing"
@@ -133,6 +134,24 @@ func TestReportTravels(t *testing.T) {
 		if math.IsNaN(v) != strings.Contains(string(b), `"gate_v":null`) {
 			t.Errorf("%s", b)
 		}
+	}
+}
+
+// A start that failed half-way says so when the supplies may still be on.
+func TestStartSaysWhatIsNotProved(t *testing.T) {
+	for _, x := range []struct {
+		off  *OffReport
+		word bool
+	}{{nil, false}, {&OffReport{Reached: true, Drain: "off"}, false}, {&OffReport{Drain: "not known"}, true}} {
+		a := answer{Off: x.off}
+		a.fail(fmt.Errorf("%w: the gate supply", ErrLine))
+		err := a.startErr()
+		if !errors.Is(err, ErrLine) || strings.Contains(err.Error(), "by hand") != x.word {
+			t.Errorf("%+v: %v", x.off, err)
+		}
+	}
+	if err := (&answer{}).startErr(); err != nil {
+		t.Error(err)
 	}
 }
 

@@ -1,7 +1,7 @@
-// Package keeper guards driven supplies in a process of its own. It alone holds
+// Package keeper looks after driven supplies from a second process. It alone holds
 // their lines; whatever becomes of the measuring program (a limit reached, an
 // interrupt, a panic, a kill, a hang), it brings the device to its off state:
-// drain supply off first where it can be switched, gate held at the off voltage,
+// first the drain supply is switched off, if it can be, then the gate is set to its off voltage,
 // both read back, the gate's output opened only when that is safe.
 //
 // It takes no part in measuring and knows no curve. It cannot help against loss

@@ -88,7 +88,7 @@ func Start(ctx context.Context, exe string, args, env []string, c Config) (*Keep
 	defer limit.Stop()
 	select {
 	case a := <-started:
-		err = a.err()
+		err = a.startErr()
 	case <-ctx.Done():
 		err = fmt.Errorf("%w: %w", ErrConfig, ctx.Err())
 	case <-k.gone:

@@ -72,6 +72,16 @@ func (a *answer) err() error {
 	return &told{a.Error, kinds[a.Kind]}
 }
 
+// startErr is that of a start. One that went wrong half-way led to the off state, and
+// where that is not proved somebody must know.
+func (a *answer) startErr() error {
+	err := a.err()
+	if err == nil || a.Off == nil || a.Off.Reached {
+		return err
+	}
+	return fmt.Errorf("%w; the off state is not proved (drain supply %s): switch the supplies off by hand", err, a.Off.Drain)
+}
+
 func (a *answer) fail(err error) {
 	if err != nil {
 		a.Error, a.Kind = err.Error(), kindOf(err)

@@ -8,6 +8,10 @@ import (
 	"strings"
 )
 
+// BenchName is the name of every bench that does not exist, by which what it said can
+// be told from what was measured.
+const BenchName = "rehearsal (invented)"
+
 // Describe gives a bench file that describes the bench as a person would who knows
 // its data sheets: not its faults, its noise sources or its unknown lags. path gives
 // the address of a line.
@@ -20,7 +24,7 @@ func (b *Bench) Describe(path func(line string) string) (string, error) {
 			put(key, "%q", quantity(x, unit))
 		}
 	}
-	put("name", "%q", "rehearsal (invented)")
+	put("name", "%q", BenchName)
 	t.WriteString("\n[circuit]\n")
 	put("kind", "%q", c.Circuit)
 	if c.Circuit != "fixed" {

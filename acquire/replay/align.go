@@ -32,8 +32,13 @@ type between struct {
 
 func (b *between) at(t float64) float64 {
 	s := b.s
-	for b.i < len(s.t) && s.t[b.i] < t {
+	for step := 1; b.i < len(s.t) && s.t[b.i] < t; step *= 2 { // in leaps, halved again where one was too far
+		if j := b.i + step; j < len(s.t) && s.t[j] < t {
+			b.i = j
+			continue
+		}
 		b.i++
+		step = 1
 	}
 	if b.i == len(s.t) || b.i == 0 && s.t[0] > t {
 		return math.NaN()
@@ -49,17 +54,20 @@ func (b *between) at(t float64) float64 {
 	return s.v[b.i-1] + f*(s.v[b.i]-s.v[b.i-1])
 }
 
-// thin keeps at most n readings, evenly.
-func (s *series) thin(n int) *series {
-	if len(s.t) <= n {
+// part is a part of a log: readings up to half a length (s) from a share of the
+// whole. The zero part is all of it.
+type part struct{ at, half float64 }
+
+// of gives the readings of a part.
+func (s *series) of(p part) *series {
+	n := len(s.t)
+	if p.half == 0 || n == 0 || s.t[n-1]-s.t[0] <= 2*p.half {
 		return s
 	}
-	out := &series{cycle: s.cycle}
-	for i := range n {
-		k := i * len(s.t) / n
-		out.t, out.v = append(out.t, s.t[k]), append(out.v, s.v[k])
-	}
-	return out
+	middle := s.t[0] + p.at*(s.t[n-1]-s.t[0])
+	lo, _ := slices.BinarySearch(s.t, middle-p.half)
+	hi, _ := slices.BinarySearch(s.t, middle+p.half)
+	return &series{t: s.t[lo:hi], v: s.v[lo:hi], cycle: s.cycle}
 }
 
 // without leaves out the readings of one block of time.

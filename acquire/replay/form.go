@@ -1,6 +1,7 @@
 package replay
 
 import (
+	"bytes"
 	"fmt"
 	"regexp"
 	"slices"
@@ -247,4 +248,33 @@ func otherRole(role, unit string) string {
 		return "load"
 	}
 	return "gate"
+}
+
+// settleDecimal settles the decimal mark from the readings and numeric times. A
+// comma before the fraction of the seconds settles what readings like 3,012 leave
+// open.
+func (rd *logReader) settleDecimal(times bool) error {
+	var err error
+	points, commas := false, false
+	for _, s := range rd.sample {
+		points = points || strings.Contains(s.cells[rd.valueCol], ".")
+		at := max(rd.clockCol, rd.timeCol)
+		commas = commas || strings.Contains(s.cells[at], ":") && strings.Contains(s.cells[at], ",")
+	}
+	rd.mark, err = rd.text.Decimal(rd.delim, func(yield func([]byte) bool) {
+		if commas && !points && !yield([]byte("0,5")) {
+			return
+		}
+		for row := range rd.text.Rows(rd.delim) {
+			if row.Comment || row.Line <= rd.log.Found.Header {
+				continue
+			}
+			bare, _ := cutCoupling(cell(row.Cells, rd.valueCol))
+			if !yield(bare) || times && !yield(bytes.TrimSpace(cell(row.Cells, rd.timeCol))) {
+				return
+			}
+		}
+	})
+	rd.log.Found.Decimal = map[byte]string{'.': "point", ',': "comma"}[rd.mark]
+	return err
 }

@@ -14,12 +14,6 @@ import (
 // practice, no source).
 const assumedBound = 1.0
 
-// cuts are how far deviations count while an offset is looked for, in turn: the
-// nearer, the less a reading on the move says, and the more those that begin and end
-// a step. In natural logarithms for proportional logs; a fifth of it as a share of
-// the gate's span.
-var cuts = []float64{0.5, 0.15, 0.06}
-
 // Join brings logs to one time base. notesLog and notes may be nil.
 func Join(logs []*Log, notesLog *Log, notes []Note, opt Options) (*Session, error) {
 	j := &joiner{opt: opt, s: &Session{Logs: logs, Notes: notes, NotesLog: notesLog}}
@@ -80,7 +74,7 @@ func (j *joiner) log(role string) *Log {
 // of the load, else of the drain.
 func (j *joiner) reference() error {
 	if j.log("gate") == nil {
-		return fmt.Errorf("%w: %w", table.ErrRefused, errNoGate)
+		return fmt.Errorf("%w: no log of the gate meter", table.ErrRefused)
 	}
 	for _, role := range []string{"current", "load", "drain"} {
 		if l := j.log(role); l != nil {
@@ -143,69 +137,6 @@ func (l *Log) digit() float64 {
 		}
 	}
 	return least
-}
-
-// align holds the clock of a log against that of the reference.
-func (j *joiner) align(l *Log) error {
-	apart := j.o.kinds[l] == fromZero || j.o.kinds[j.ref] == fromZero
-	if j.o.kinds[l] == j.o.kinds[j.ref] && (l.start == j.ref.Role || j.ref.start == l.Role) {
-		apart = false
-	}
-	c := &Clock{Against: j.ref.Role}
-	l.Found.Clock = c
-	moving, fixed := l.numbers(), j.ref.numbers()
-	if len(moving.t) < 2 || len(fixed.t) < 2 {
-		return j.assume(l, apart, "there are too few readings")
-	}
-	mid := (max(moving.t[0], fixed.t[0]) + min(moving.t[len(moving.t)-1], fixed.t[len(fixed.t)-1])) / 2
-	if apart {
-		mid = (moving.t[0] + moving.t[len(moving.t)-1]) / 2
-	}
-	c.middle = mid
-	cost, seen := j.costs(l, mid)
-	if cost == nil {
-		return j.assume(l, apart, "nothing relates the "+l.Role+" to the "+j.ref.Role)
-	}
-	span := min(moving.t[len(moving.t)-1]-moving.t[0], fixed.t[len(fixed.t)-1]-fixed.t[0])
-	shorter := 0.3 * span
-	wideLo, wideHi := fixed.t[0]-moving.t[len(moving.t)-1]+shorter, fixed.t[len(fixed.t)-1]-moving.t[0]-shorter
-	step := max(0.02, min(moving.cycle, fixed.cycle)/2)
-	drift := span >= leastSpan
-	thin := cost(moving, fixed, 1500, cuts[0])
-	var fine []misfit
-	for _, c := range cuts {
-		fine = append(fine, cost(moving, fixed, 0, c))
-	}
-	full := fine[len(fine)-1]
-	var f found
-	if !apart {
-		f = search(fine, thin, -nearRange, nearRange, step, span, drift)
-	}
-	if !f.ok {
-		coarse := max(step, (wideHi-wideLo)/20000)
-		if g := search(fine, thin, wideLo, wideHi, coarse, span, drift); g.ok || apart {
-			f = g
-		}
-	}
-	if !f.ok {
-		why := "the readings have too little structure"
-		if f.depth >= leastDepth && f.dip >= leastDip {
-			why = "several offsets fit about equally well"
-		}
-		return j.assume(l, apart, why)
-	}
-	f.profile(full, span, drift)
-	f.jackknife(func(lo, hi float64) misfit {
-		return cost(moving.without(lo, hi), fixed.without(lo+f.offset, hi+f.offset), 0, cuts[len(cuts)-1])
-	}, moving.t[0], moving.t[len(moving.t)-1], step, span, drift)
-	if drift && !(f.driftU < 300e-6) {
-		drift = false
-		f.offset, f.drift = refine(full, f.offset, 0, step, span, false)
-		f.profile(full, span, false)
-		f.driftU = 0
-	}
-	j.keep(l, c, f, seen, span, drift)
-	return nil
 }
 
 // keep takes what was found for the clock.
@@ -273,52 +204,6 @@ func other(count, a, b *Log) *Log {
 	return a
 }
 
-// costs gives what makes the misfit of a log against the reference, with what is
-// compared in words; nil where nothing relates the two. thin limits the readings
-// that are held against each other, 0: all; cut is one of [cuts].
-func (j *joiner) costs(l *Log, middle float64) (make func(moving, fixed *series, thin int, cut float64) misfit, seen string) {
-	floor := j.ref.floor()
-	sign := 1.0
-	if j.opt.Table.PChannel {
-		sign = -1
-	}
-	limited := func(s *series, n int) *series {
-		if n > 0 {
-			return s.thin(n)
-		}
-		return s
-	}
-	switch {
-	case l.Role == "gate" && j.ref.Role == "drain":
-		// The drain falls where the current rises: its distance from the greatest.
-		top := 0.0
-		for _, x := range j.ref.numbers().v {
-			top = max(top, math.Abs(x))
-		}
-		below := func(s *series) *series {
-			out := &series{t: s.t, cycle: s.cycle}
-			for _, x := range s.v {
-				out.v = append(out.v, top-math.Abs(x))
-			}
-			return out
-		}
-		return func(m, f *series, n int, cut float64) misfit {
-			return singleValued(m, limited(below(f), n), middle, max(floor, 0.01*top), l.digit(), sign, cut/5)
-		}, "one gate voltage, one drain voltage"
-	case l.Role == "gate":
-		return func(m, f *series, n int, cut float64) misfit {
-			return singleValued(m, limited(f, n), middle, floor, l.digit(), sign, cut/5)
-		}, "one gate voltage, one " + noun(j.ref.Role)
-	case l.Role == "load" && j.ref.Role == "current":
-		return func(m, f *series, n int, cut float64) misfit {
-			return proportional(limited(m, n), f, middle, l.floor(), floor, cut)
-		}, "the voltage at the load follows the current"
-	case l.Role == "drain":
-		return func(m, f *series, n int, cut float64) misfit { return affine(limited(m, n), f, middle) }, "the drain voltage falls with the current"
-	}
-	return nil, ""
-}
-
 func noun(role string) string {
 	if role == "current" {
 		return role
@@ -367,7 +252,7 @@ func (j *joiner) checkSwapped() error {
 		return nil
 	}
 	follows := func(l *Log) float64 {
-		h := proportional(l.numbers().thin(1500), current.numbers(), 0, l.floor(), current.floor(), cuts[0])(0, 0)
+		h := proportional(l.numbers(), current.numbers(), 0, l.floor(), current.floor(), cuts[0])(0, 0)
 		if h.n == 0 {
 			return 1
 		}

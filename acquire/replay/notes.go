@@ -66,10 +66,8 @@ func readNotes(t *table.Text, path string, opt Options) (*Log, []Note, error) {
 	if len(notes) == 0 {
 		return nil, nil, t.Refuse(0, "a note is a line of a time and a text: 10:02:03 device D7 in", "it holds no notes")
 	}
-	for _, step := range []func() error{rd.settleNoteForm} {
-		if err := step(); err != nil {
-			return nil, nil, err
-		}
+	if err := rd.settleNoteForm(); err != nil {
+		return nil, nil, err
 	}
 	var in []instant
 	for _, s := range rd.sample {
@@ -202,7 +200,6 @@ func readTexts(t *table.Text, notes []Note, opt Options) error {
 // word is a word of a note.
 type word struct {
 	text, low string
-	named     bool // behind a noun or a #: a name whatever it looks like
 }
 
 // readNote finds the device that goes in, and whether one goes out. The text why

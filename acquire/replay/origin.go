@@ -1,7 +1,6 @@
 package replay
 
 import (
-	"errors"
 	"fmt"
 	"math"
 	"slices"
@@ -134,14 +133,14 @@ func (o *origins) zone() error {
 	} else {
 		open := false
 		for _, l := range utc {
-			for i, z := range l.zones {
-				if from != "" && z != zone && i == 0 {
-					open = true
-				}
-				if from == "" {
-					zone, from = z, l.Name
-				}
-				break
+			if len(l.zones) == 0 {
+				continue
+			}
+			switch z := l.zones[0]; { // a zone that changes on the way is that of its start
+			case from == "":
+				zone, from = z, l.Name
+			case z != zone:
+				open = true
 			}
 		}
 		if from == "" || open {
@@ -162,11 +161,9 @@ func (o *origins) zone() error {
 		}
 	}
 	for _, l := range wall {
-		if o.kinds[l] == onDay {
-			l.shift(-float64(zone))
+		l.shift(-float64(zone))
+		if o.kinds[l] == onDay { // the others are still without a day
 			o.kinds[l] = inUTC
-		} else {
-			l.shift(-float64(zone)) // still without a day
 		}
 	}
 	return nil
@@ -319,5 +316,3 @@ func (o *origins) span(l *Log) string {
 	}
 	return text(l.from()) + " to " + text(l.to()) + zone
 }
-
-var errNoGate = errors.New("no log of the gate meter")

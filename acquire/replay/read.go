@@ -306,7 +306,7 @@ func (rd *logReader) readingOf(cells [][]byte) (r record.Reading, why string) {
 	if n.Unit.Dim != "" {
 		unit = n.Unit
 	}
-	r.Unit = unitSymbol(q.dim)
+	r.Unit = q.dim
 	if r.State = n.State; r.State == "" {
 		r.Value, r.Digit = record.Known(n.Value), record.Known(n.Digit)
 		rd.zeros = rd.zeros || endsInZero(bare, rd.mark)
@@ -334,12 +334,10 @@ func (rd *logReader) readingOf(cells [][]byte) (r record.Reading, why string) {
 // orBase is the unit, or the base unit of the dimension when there is none.
 func orBase(u table.Unit, dim string) table.Unit {
 	if u.Dim == "" {
-		return table.Unit{Text: unitSymbol(dim), Dim: dim}
+		return table.Unit{Text: dim, Dim: dim}
 	}
 	return u
 }
-
-func unitSymbol(dim string) string { return dim }
 
 // cutCoupling takes DC or AC off the end of a number with its unit: 5.1 VDC.
 func cutCoupling(text []byte) (bare []byte, ac bool) {

@@ -95,16 +95,15 @@ type Entry struct {
 // what it shows is brought over by adding Offset, and Drift times the time since
 // the middle of both.
 type Clock struct {
-	Against  string  `json:"against"`
-	Offset   float64 `json:"offset_s"`
-	OffsetU  float64 `json:"offset_u_s"` // standard uncertainty; 0 where assumed
-	Drift    float64 `json:"drift_ppm"`  // 0 where it was not looked for
-	DriftU   float64 `json:"drift_u_ppm"`
-	Assumed  bool    `json:"assumed"` // the readings do not tell: an offset of 0 was assumed
-	Why      string  `json:"why"`     // in a sentence
-	Bound    float64 `json:"bound_s"` // greatest error of the times after it
-	middle   float64
-	searched float64
+	Against string  `json:"against"`
+	Offset  float64 `json:"offset_s"`
+	OffsetU float64 `json:"offset_u_s"` // standard uncertainty; 0 where assumed
+	Drift   float64 `json:"drift_ppm"`  // 0 where it was not looked for
+	DriftU  float64 `json:"drift_u_ppm"`
+	Assumed bool    `json:"assumed"` // the readings do not tell: an offset of 0 was assumed
+	Why     string  `json:"why"`     // in a sentence
+	Bound   float64 `json:"bound_s"` // greatest error of the times after it
+	middle  float64 // s, on the clock of the log; drift counts from there
 }
 
 // Correct gives the time of the other clock for a time of this one.
@@ -137,8 +136,8 @@ type Session struct {
 	Notes     []Note
 	NotesLog  *Log
 	Stretches []Stretch
-	Started   string // stamp or bare date of time 0, "" not known
-	Span      float64
+	Started   string   // stamp or bare date of time 0, "" not known
+	Span      float64  // s, from the first reading to the last
 	Remarks   []string // what was decided between the logs, in sentences
-	Warnings  []string
+	Warnings  []string // what may be wrong
 }

@@ -28,9 +28,15 @@ const (
 // trial is one offset with what it comes to.
 type trial struct{ at, share, n float64 }
 
+// stage is a misfit over a length of time (s), for the steps of drift.
+type stage struct {
+	cost misfit
+	span float64
+}
+
 // search looks for the offset within [lo, hi] by the coarse misfit, and from there
 // for offset and, when that is asked for, drift by the fine ones in turn.
-func search(fine []misfit, coarse misfit, lo, hi, step, span float64, drift bool) found {
+func search(fine []stage, coarse misfit, lo, hi, step float64, drift bool) found {
 	trials := scan(coarse, lo, hi, step)
 	if len(trials) < 9 {
 		return found{}
@@ -51,8 +57,8 @@ func search(fine []misfit, coarse misfit, lo, hi, step, span float64, drift bool
 	if !f.ok {
 		return f
 	}
-	for _, cost := range fine {
-		f.offset, f.drift = refine(cost, f.offset, f.drift, step, span, drift)
+	for _, s := range fine {
+		f.offset, f.drift = refine(s.cost, f.offset, f.drift, step, s.span, drift)
 	}
 	return f
 }

@@ -49,6 +49,9 @@ func TestWriteLogs(t *testing.T) {
 	}
 	fix("mixed_load.txt")
 	off := offTimes(b)
+	first, _ := b.gateFor(1e-3, off-20)
+	second, _ := b.gateFor(1e-3, off+20)
+	t.Logf("true gate voltages at 1 mA, for the scripts: %.4f and %.4f V", first, second)
 	notes.WriteString("# invented notes to the invented logs mixed_*\n")
 	fmt.Fprintf(&notes, "%s device B in socket\n", wall(start, "15:04:05")(2))
 	fmt.Fprintf(&notes, "%s removed\n", wall(start, "15:04:05")(off-2))

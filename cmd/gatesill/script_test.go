@@ -63,6 +63,7 @@ func TestScripts(t *testing.T) {
 			env.Setenv("SCENARIOS", filepath.Join(root, "testdata", "scenarios"))
 			env.Setenv("SPICE", filepath.Join(root, "testdata", "spice"))
 			env.Setenv("FAULTS", filepath.Join(root, "testdata", "faults"))
+			env.Setenv("LOGS", filepath.Join(root, "testdata", "logs"))
 			env.Setenv("GATESILL_STORE", filepath.Join(env.WorkDir, "store.db"))
 			env.Setenv("HOME", env.WorkDir)
 			return nil

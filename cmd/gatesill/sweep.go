@@ -1,6 +1,7 @@
 package main
 
 import (
+	"bufio"
 	"fmt"
 	"strings"
 
@@ -54,6 +55,9 @@ programmable supply, which needs limits for V_GS, I_D and P_D and is guarded by
 a process of its own; --spot reads V_GS at one current (--at), once it has
 settled. After every sweep a point at low power is taken again.
 
+Meters without a lead are read by you: line = "keyboard" in the bench file, and
+what they show is typed, one line a point.
+
 A session that a crash or a power cut ended goes on at the same device.
 
 keys: space or Enter take or go on, f finish, u take the last point back, r
@@ -102,6 +106,9 @@ resistor at the gate protect.`,
 			if rq.Faults, err = faultsOf(faults, rq.Rehearsal); err != nil {
 				return err
 			}
+			if rq.FindLag && rq.Mode == acquire.Driven {
+				return job.Usage("leave one of them out", "--find-lag needs a hand at the knob; where a supply sets the gate all stands still, and no lag matters")
+			}
 			if settle != "" && settle != "auto" {
 				x, err := record.ParseNumber(settle, "s")
 				if err != nil {
@@ -113,6 +120,7 @@ resistor at the gate protect.`,
 			if tempOf == "" && rq.Given.Temp.IsKnown() {
 				rq.Given.TempOf = "ambient"
 			}
+			rq.Input = bufio.NewReader(cmd.InOrStdin())
 			rq.Keyboard, rq.Size, rq.Raw = keyboard, terminalSize, returning{cmd.ErrOrStderr()}
 			return job.Sweep(cmd.Context(), env, rq)
 		},
@@ -137,6 +145,7 @@ resistor at the gate protect.`,
 	fs.StringVar(&rq.Operator, "operator", "", "`NAME` of who measures")
 	fs.StringVar(&rq.Fixture, "fixture", "", "`NAME` of the fixture")
 	fs.StringVar(&rq.Session, "session", "", "`NAME` of the sitting")
+	fs.BoolVar(&rq.FindLag, "find-lag", false, "with the first device, find by how much the meters lag behind the gate's: one slow ramp up and one down at low power")
 	fs.StringVar(&rq.SkipChecks, "skip-checks", "", "do not check the bench first; the `REASON` is kept")
 	return cmd
 }

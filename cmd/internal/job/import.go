@@ -165,8 +165,8 @@ func (im *importer) prepare(ctx context.Context) error {
 			im.env.warn("flags and bench file %s differ about the circuit; the flags were taken [%s]", report.Clean(im.rq.Bench), fit.CodeFlagWins)
 		}
 		im.rq.Table.Given = merge(im.rq.Table.Given, b.Given)
-		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			im.env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
+		for _, text := range lapsed(b, time.Now().UTC().Format(time.DateOnly)) {
+			im.env.warn("%s [%s]", report.Clean(text), fit.CodeOverdue)
 		}
 	}
 	im.seen, im.answers, im.settled = map[string]string{}, map[string]string{}, map[string]map[string]string{}
@@ -314,11 +314,6 @@ func (im *importer) one(ctx context.Context, name string) (report.ImportFile, er
 	return out, nil
 }
 
-// seenReason says that a source was imported before, and what to do about it.
-func seenReason(prior record.Source) string {
-	return fmt.Sprintf("the same bytes were imported as %s on %s; nothing was changed. To read the file anew, with what is given now, use --again: the earlier sweeps are set aside", report.Clean(prior.Name), prior.ImportedAt[:10])
-}
-
 // seenBefore looks for the same bytes among the lot's sources.
 func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (prior record.Source, ok bool, err error) {
 	if im.db == nil {
@@ -341,25 +336,6 @@ func (im *importer) seenBefore(ctx context.Context, name string, data []byte) (p
 		}
 	}
 	return im.seenAs(ctx, hex.EncodeToString(h.Sum(nil)))
-}
-
-// seenAs looks for a source with that hash among the lot's.
-func (im *importer) seenAs(ctx context.Context, hash string) (prior record.Source, ok bool, err error) {
-	if im.db == nil {
-		return prior, false, nil
-	}
-	err = im.db.View(ctx, func(tx *store.Tx) error {
-		lot, err := tx.Lot(im.rq.Lot)
-		if err != nil {
-			return err
-		}
-		prior, err = tx.SourceByHash(lot.ID, hash)
-		return err
-	})
-	if errors.Is(err, store.ErrNotFound) {
-		return prior, false, nil
-	}
-	return prior, err == nil, storeFailure(err)
 }
 
 // options completes the reader's options for one file.

@@ -3,6 +3,7 @@ package job
 import (
 	"context"
 	"errors"
+	"fmt"
 	"maps"
 	"strings"
 
@@ -73,6 +74,30 @@ func (im *importer) store(ctx context.Context, f *table.File, sweeps []table.Swe
 		im.seen[sweeps[i].DataHash] = sweeps[i].Device
 	}
 	return nil
+}
+
+// seenAs looks for a source with that hash among the lot's.
+func (im *importer) seenAs(ctx context.Context, hash string) (prior record.Source, ok bool, err error) {
+	if im.db == nil {
+		return prior, false, nil
+	}
+	err = im.db.View(ctx, func(tx *store.Tx) error {
+		lot, err := tx.Lot(im.rq.Lot)
+		if err != nil {
+			return err
+		}
+		prior, err = tx.SourceByHash(lot.ID, hash)
+		return err
+	})
+	if errors.Is(err, store.ErrNotFound) {
+		return prior, false, nil
+	}
+	return prior, err == nil, storeFailure(err)
+}
+
+// seenReason says that a source was imported before, and what to do about it.
+func seenReason(prior record.Source) string {
+	return fmt.Sprintf("the same bytes were imported as %s on %s; nothing was changed. To read the file anew, with what is given now, use --again: the earlier sweeps are set aside", report.Clean(prior.Name), prior.ImportedAt[:10])
 }
 
 // setAside excludes the sweeps of earlier imports of the same bytes, so that

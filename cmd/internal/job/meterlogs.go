@@ -46,14 +46,8 @@ type logSet struct {
 	session *replay.Session
 	file    table.File // what the checks of an import look at
 	dialect logDialect
-	drafts  []draft // one a sweep, beside file.Sweeps
-	empty   []string
-	rows    int
-}
 
-// draft is what belongs to a sweep besides its data.
-type draft struct {
-	readings []record.Reading
+	readings [][]record.Reading // that each sweep was made of, beside file.Sweeps
 }
 
 // meterLogs imports a set of logs that were recorded meter by meter: one
@@ -126,7 +120,6 @@ func (im *importer) logs(ctx context.Context, out *report.ImportFile) error {
 		}
 		fmt.Fprintf(sum, "%s %s\n", role, l.Hash)
 		set.file.Size += l.Size
-		set.rows += l.Rows
 		out.RowsRefused += l.Refused
 	}
 	set.file.Hash = hex.EncodeToString(sum.Sum(nil))
@@ -205,14 +198,25 @@ func (im *importer) socket() replay.Socket {
 	return k
 }
 
-// pairing says how the meters of the set are brought together: their clocks were
-// held against each other with all their delays, so only what remains open counts.
+// pairing says how the meters of the set are brought together. Clocks that were held
+// against each other by the readings were so with all delays of the meters, so only
+// what remains open counts; where an offset was assumed, what the bench file says of
+// the delays is taken, against that of the meter the others are held against.
 func (im *importer) pairing(s *replay.Session) acquire.Pairing {
 	p := acquire.Pairing{Timing: map[string]acquire.Timing{}, Free: true}
+	known := map[string]acquire.Timing{}
+	if im.bench != nil {
+		known = Timings(im.bench)
+	}
 	for _, l := range s.Logs {
 		t := acquire.Timing{}
 		if c := l.Found.Clock; c != nil {
 			t.LagU = c.Bound
+			if own, ok := known[l.Role]; ok && c.Assumed {
+				ref := known[c.Against]
+				t.Lag = ref.Instant(0) - own.Instant(0)
+				t.LagU += own.LagU + ref.LagU
+			}
 		}
 		p.Timing[l.Role] = t
 	}
@@ -242,7 +246,6 @@ func (im *importer) pair(set *logSet) {
 		c.OverTolerance += did.OverTolerance
 		c.Unpaired += did.Unpaired
 		if len(points) == 0 {
-			set.empty = append(set.empty, st.Device)
 			set.dialect.Warnings = append(set.dialect.Warnings, fmt.Sprintf("device %s: no point could be made of %s, it is left out", st.Device, count(len(readings), "reading")))
 			continue
 		}
@@ -284,7 +287,7 @@ func (im *importer) sweeps(set *logSet, st replay.Stretch, points []acquire.Poin
 				own = append(own, r)
 			}
 		}
-		set.drafts = append(set.drafts, draft{readings: own})
+		set.readings = append(set.readings, own)
 		set.file.Points += sw.Len()
 		from = to
 	}

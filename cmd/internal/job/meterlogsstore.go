@@ -56,7 +56,7 @@ func (im *importer) storeLogs(ctx context.Context, set *logSet) error {
 			if im.bench != nil {
 				r.Instruments = im.bench.Meters
 			}
-			if err := im.storeSweep(tx, r, set.drafts[i].readings); err != nil {
+			if err := im.storeSweep(tx, r, set.readings[i]); err != nil {
 				return fmt.Errorf("sweep %d of %d: %w", i+1, len(f.Sweeps), err)
 			}
 		}
@@ -190,12 +190,20 @@ func logsRecognised(w io.Writer, set *logSet, refused int) error {
 	if s.Started != "" {
 		line("start", "%s, %.0f s long", s.Started, s.Span)
 	}
-	line("circuit", "%s", circuits(set.file.Sweeps))
+	if len(set.file.Sweeps) > 0 {
+		line("circuit", "%s", circuits(set.file.Sweeps))
+	}
 	for _, n := range s.Remarks {
 		line("note", "%s", n)
 	}
-	for _, st := range s.Stretches {
-		line("device", "%s from %.1f s to %.1f s", st.Device, st.From, st.To)
+	const most = 12
+	for i, st := range s.Stretches {
+		switch n := len(s.Stretches); {
+		case n <= most || i < most/2 || i >= n-most/2:
+			line("device", "%s from %.1f s to %.1f s", st.Device, st.From, st.To)
+		case i == most/2:
+			line("", "and %d more", n-most)
+		}
 	}
 	line("points", "%d in %s: %s", set.file.Points, count(len(set.file.Sweeps), "sweep"), set.counts())
 	_, err := io.WriteString(w, b.String())

@@ -57,6 +57,11 @@ func Meters(ctx context.Context, env *Env, rq MetersRequest) error {
 	if err != nil {
 		return err
 	}
+	if typed, err := typedBench(b); err != nil {
+		return err
+	} else if typed {
+		return failed("gatesill sweep LOT --bench "+Quote(rq.Bench)+" asks for them", "bench file %s: the readings are typed, there is nothing to listen to", report.Clean(rq.Bench))
+	}
 	return watchMeters(ctx, env, b, rq)
 }
 

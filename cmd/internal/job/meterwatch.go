@@ -232,14 +232,19 @@ func (w *meterWatch) picture(now float64, invented bool) screen.Model {
 
 // cautions are those of the bench and of calibrations that are overdue.
 func (w *meterWatch) cautions() []string {
-	out := w.bench.Cautions()
-	for _, in := range w.bench.Overdue(w.today) {
-		out = append(out, fmt.Sprintf("the calibration of the %s meter%s was due on %s", in.Role, quoted(in.Name), in.Due))
-	}
+	out := append(w.bench.Cautions(), lapsed(w.bench, w.today)...)
 	for _, s := range w.bench.Supplies {
 		if s.Due != "" && s.Due < w.today {
 			out = append(out, fmt.Sprintf("the calibration of the %s supply%s was due on %s", s.Drives, quoted(s.Name), s.Due))
 		}
+	}
+	return out
+}
+
+// lapsed says which calibrations of meters were due before a day, YYYY-MM-DD.
+func lapsed(b *bench.Bench, day string) (out []string) {
+	for _, m := range b.Overdue(day) {
+		out = append(out, fmt.Sprintf("the calibration of the %s meter%s was due on %s", m.Role, quoted(m.Name), m.Due))
 	}
 	return out
 }

@@ -25,16 +25,12 @@ type rehearsed struct {
 	folder   string
 	names    []string // of the simulated devices
 	inserted string
-	rate     float64 // V/s, to aim
-	aim      float64 // V, where the hand turns the knob; NaN: it has not been asked yet
+	aim      float64 // V, where the hand turns the knob; NaN: it stands still
+	rate     float64 // V/s
 }
 
-// How fast the simulated hand turns the knob, V/s.
-const (
-	handRate   = 1.0  // to a voltage that is said
-	creepRate  = 0.08 // with an eye on the current
-	followRate = 0.03 // while points are taken on the move: slow handhelds allow no more
-)
+// handRate is how fast the simulated hand turns the knob outside of a sweep, V/s.
+const handRate = 1.0
 
 // rehearse starts a simulated bench.
 func rehearse(ctx context.Context, c rehearsal.Config) (*rehearsed, error) {
@@ -112,18 +108,10 @@ func (r *rehearsed) turn(v, rate float64) error {
 func (m *measuring) hand(at float64) {
 	h := m.r.Hand()
 	id := math.Abs(m.w.last[acquire.Current].number.Value.Float())
-	shows := id > showsFrom // false while not known
-	switch {
-	case m.w.rq.Mode == acquire.AtSpot && shows && m.nudge(h, id, at):
-	case !h.Creep:
-		m.w.handAt(h.To, handRate)
-	case m.w.rq.Mode == acquire.Free && shows:
-		m.w.handAt(h.To, followRate)
-	case m.w.rq.Mode == acquire.AtSpot && !shows:
-		m.w.handAt(h.To, 3*creepRate)
-	default:
-		m.w.handAt(h.To, creepRate)
+	if m.w.rq.Mode == acquire.AtSpot && id > showsFrom && m.nudge(h, id, at) { // false while not known
+		return
 	}
+	m.w.handAt(h.To, h.Rate)
 }
 
 // showsFrom is the current from which the hand of a rehearsal takes more care, A.

@@ -10,6 +10,7 @@ import (
 
 	"gatesill/acquire"
 	"gatesill/acquire/bench"
+	"gatesill/acquire/rehearsal"
 	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
@@ -34,6 +35,8 @@ type sitting struct {
 	next    int       // measuring order of the next sweep
 	meters  shownRanges
 
+	held  *holding      // of the session
+	past  agreed        // in a session that is gone on with
 	sweep *record.Sweep // being measured; nil: none
 	cut   []cutShort    // sweeps that an earlier program left unfinished
 }
@@ -56,22 +59,22 @@ type sittingRequest struct {
 // openSitting opens the store, makes the lot where it is absent, gives what an
 // earlier program left unfinished its points, and begins a session or goes on
 // with the one that was cut short.
-func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, err error) {
+func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (*sitting, error) {
 	if err := record.CheckName("lot", rq.Lot); err != nil {
 		return nil, invalid(err)
 	}
-	s = &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
-	if s.db, err = e.open(ctx, true, false); err != nil {
+	s := &sitting{env: e, bench: rq.Bench, given: rq.Given, meters: shownRanges{}}
+	db, err := e.open(ctx, true, false)
+	if err != nil {
 		return nil, err
 	}
-	defer func() {
-		if err != nil {
-			_ = s.db.Close()
-		}
-	}()
+	s.db = db
 	now := time.Now()
 	err = s.db.Update(ctx, func(tx *store.Tx) error {
 		if err := s.lotOrNew(tx, rq.Lot); err != nil {
+			return err
+		}
+		if err := s.unmixed(tx); err != nil {
 			return err
 		}
 		benchID, err := tx.AddBench(s.bench.Name, s.bench.Text)
@@ -90,6 +93,9 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, e
 				return err
 			}
 			s.started = now
+			if s.held, err = hold(s.db.Path(), s.session.ID); err != nil {
+				return err
+			}
 		}
 		sweeps, err := tx.Sweeps(s.lot.ID, false)
 		for _, sw := range sweeps {
@@ -98,8 +104,11 @@ func (e *Env) openSitting(ctx context.Context, rq sittingRequest) (s *sitting, e
 		return err
 	})
 	if err != nil {
-		return nil, storeFailure(err)
+		s.held.release()
+		_, cerr := db.RemoveIfEmpty(ctx)
+		return nil, storeFailure(errors.Join(err, cerr))
 	}
+	tidy(s.db.Path())
 	s.live = s.db.NewLive(ctx)
 	return s, nil
 }
@@ -125,6 +134,28 @@ func (s *sitting) lotOrNew(tx *store.Tx, name string) error {
 	return invalid(tx.PutLot(&s.lot, "sweep"))
 }
 
+// unmixed refuses to put invented sweeps and measured ones into one lot.
+func (s *sitting) unmixed(tx *store.Tx) error {
+	sweeps, err := tx.Sweeps(s.lot.ID, false)
+	if err != nil || len(sweeps) == 0 {
+		return err
+	}
+	sessions, err := tx.Sessions(s.lot.ID)
+	if err != nil {
+		return err
+	}
+	invented := map[string]bool{}
+	for _, x := range sessions {
+		invented[x.ID] = x.Bench == rehearsal.BenchName
+	}
+	for _, sw := range sweeps {
+		if invented[sw.SessionID] != (s.bench.Name == rehearsal.BenchName) {
+			return failed("name another lot, or another store with --store", "lot %q: measured sweeps and those of a rehearsal do not go into one lot", s.lot.Name)
+		}
+	}
+	return nil
+}
+
 // takeUp gives the sweeps of the lot that were never finished the points that
 // their readings make, sets them aside, and goes on with the session of the last
 // one when it was on the same bench, not long ago.
@@ -138,31 +169,56 @@ func (s *sitting) takeUp(tx *store.Tx, benchID string, now time.Time) error {
 		if sw.LotID != s.lot.ID {
 			continue
 		}
-		points, err := s.recover(tx, sw)
-		if err != nil {
+		if err := s.takeUpSweep(tx, sw, benchID, now); err != nil {
 			return err
-		}
-		device, err := tx.DeviceByID(sw.DeviceID)
-		if err != nil {
-			return err
-		}
-		s.cut = append(s.cut, cutShort{device.Name, points})
-		if sw.SessionID == "" {
-			continue
-		}
-		session, err := tx.Session(sw.SessionID)
-		if err != nil {
-			return err
-		}
-		began, err := time.Parse(time.RFC3339Nano, session.StartedAt)
-		if err == nil && session.BenchID == benchID && now.Sub(began) < resumeWithin && now.After(began) {
-			s.session, s.started = session, now.Add(-now.Sub(began))
-			if err := tx.AddEvents([]record.Event{{SessionID: session.ID, SweepID: sw.ID, At: now.Sub(began).Seconds(), Kind: "resumed", Text: device.Name}}); err != nil {
-				return err
-			}
 		}
 	}
 	return nil
+}
+
+// takeUpSweep takes up one sweep, unless another program is measuring it.
+func (s *sitting) takeUpSweep(tx *store.Tx, sw *record.Sweep, benchID string, now time.Time) error {
+	if sw.SessionID != "" && sw.SessionID != s.session.ID {
+		held, err := hold(s.db.Path(), sw.SessionID)
+		if err != nil {
+			return nil
+		}
+		defer func() {
+			if s.session.ID != sw.SessionID {
+				held.release()
+				return
+			}
+			s.held.release() // of one begun earlier, which is not gone on with
+			s.held = held
+		}()
+	}
+	points, err := s.recover(tx, sw)
+	if err != nil {
+		return err
+	}
+	device, err := tx.DeviceByID(sw.DeviceID)
+	if err != nil {
+		return err
+	}
+	s.cut = append(s.cut, cutShort{device.Name, points})
+	if sw.SessionID == "" {
+		return nil
+	}
+	session, err := tx.Session(sw.SessionID)
+	if err != nil {
+		return err
+	}
+	began, err := time.Parse(time.RFC3339Nano, session.StartedAt)
+	if err != nil || session.BenchID != benchID || now.Sub(began) >= resumeWithin || !now.After(began) {
+		return nil
+	}
+	s.session, s.started = session, now.Add(-now.Sub(began))
+	es, err := tx.Events(session.ID)
+	if err != nil {
+		return err
+	}
+	s.past = agreedUntil(es, math.Inf(1))
+	return tx.AddEvents([]record.Event{{SessionID: session.ID, SweepID: sw.ID, At: now.Sub(began).Seconds(), Kind: "resumed", Text: device.Name}})
 }
 
 // recover seals a sweep with what its readings give, and sets it aside: it is not
@@ -173,26 +229,40 @@ func (s *sitting) recover(tx *store.Tx, sw *record.Sweep) (int, error) {
 		return 0, err
 	}
 	b := s.bench
+	var es []record.Event
 	if sw.SessionID != "" {
-		if session, err := tx.Session(sw.SessionID); err == nil && session.BenchID != "" {
+		session, err := tx.Session(sw.SessionID)
+		if err != nil {
+			return 0, err
+		}
+		if es, err = tx.Events(session.ID); err != nil {
+			return 0, err
+		}
+		if session.BenchID != "" {
 			if _, text, err := tx.Bench(session.BenchID); err == nil {
 				if old, err := bench.Parse([]byte(text)); err == nil {
 					b = old
 				}
 			}
 		}
-	}
-	pairing := acquire.Pairing{Timing: Timings(b)}
-	events, err := tx.Events(sw.SessionID)
-	if err != nil {
-		return 0, err
-	}
-	for _, e := range events {
-		if e.SweepID == sw.ID && e.Kind == "mode" {
-			pairing = pairingOf(acquire.Mode(e.Text), pairing.Timing)
+		last := 0.0
+		for _, r := range readings {
+			last = max(last, r.At)
 		}
+		b = exchangedBench(b, agreedUntil(es, last).swap)
 	}
-	points, _ := acquire.Pair(readings, pairing)
+	var points []acquire.Point
+	if typed, _ := typedBench(b); typed {
+		points = acquire.Joint(asCounted(readings, es))
+	} else {
+		mode := acquire.ByHand
+		for _, e := range es {
+			if e.SweepID == sw.ID && e.Kind == "mode" {
+				mode = acquire.Mode(e.Text)
+			}
+		}
+		points, _ = acquire.Pair(asCounted(readings, es), pairingOf(b, mode))
+	}
 	why := "cut short: the program ended while it was measured"
 	if len(points) > 0 {
 		sw.Columns, sw.Marks = acquire.Columns(points)
@@ -273,10 +343,7 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned b
 	}
 	s.sweep = nil
 	sw.Direction, sw.Instruments = direction, s.instruments()
-	sw.Columns, sw.Marks = acquire.Columns(points)
-	if c := sw.Column(record.Settled); c != nil && returned {
-		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
-	}
+	fillSweep(sw, points, returned)
 	err := s.db.Update(ctx, func(tx *store.Tx) error {
 		if len(points) > 0 {
 			if err := tx.SealSweep(sw); err != nil {
@@ -294,9 +361,20 @@ func (s *sitting) finish(ctx context.Context, points []acquire.Point, returned b
 	return *sw, storeFailure(err)
 }
 
+// fillSweep makes points the columns of a sweep; returned says that the last one was
+// taken again.
+func fillSweep(sw *record.Sweep, points []acquire.Point, returned bool) {
+	sw.Columns, sw.Marks = acquire.Columns(points)
+	if c := sw.Column(record.Settled); c != nil && returned {
+		c.Values[len(c.Values)-1], c.Text = record.TakenAgain, nil
+	}
+}
+
 // close ends the sitting. A sweep that is still open stays so, to be taken up.
 func (s *sitting) close() error {
-	return storeFailure(errors.Join(s.live.Close(), s.db.Close()))
+	err := errors.Join(s.live.Close(), s.db.Close())
+	s.held.release()
+	return storeFailure(err)
 }
 
 // instruments are those of the bench file. A meter without ranges gets what it

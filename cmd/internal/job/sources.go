@@ -55,7 +55,10 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 	out := map[string]acquire.Timing{}
 	for i, in := range b.Meters {
 		l := b.Lines[i]
-		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), LagU: l.LagU.Or(0)}
+		if l.Path == "" {
+			continue
+		}
+		t := acquire.Timing{Integration: l.Integration.Or(0), Processing: l.Processing.Or(0), Lag: l.Lag.Or(0), LagU: l.LagU.Float()}
 		for _, lead := range []string{"/dev/serial/", "/dev/ttyUSB", "COM"} {
 			if strings.HasPrefix(l.Path, lead) {
 				t.Jitter = adapterHold
@@ -69,3 +72,17 @@ func Timings(b *bench.Bench) map[string]acquire.Timing {
 // adapterHold is how long USB serial adapters hold back bytes of a short message:
 // 16 ms is the usual setting of their timer. Common practice, no source.
 const adapterHold = 0.016
+
+// pairingOf says how the readings of a bench's meters become points in a sweep of
+// that mode.
+func pairingOf(b *bench.Bench, mode acquire.Mode) acquire.Pairing {
+	p := acquire.Pairing{Timing: Timings(b), Twice: map[string]bool{}, Free: mode == acquire.Free}
+	for i, m := range b.Meters {
+		f, ok := meter.Find(b.Lines[i].Speaks)
+		p.Twice[m.Role] = ok && f.Twice
+	}
+	if mode == acquire.Driven {
+		p.Window = drivenWindow
+	}
+	return p
+}

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"maps"
 	"math"
 	"path/filepath"
 	"slices"
@@ -34,10 +35,12 @@ type SweepRequest struct {
 	Simulated  *rehearsal.Config // the simulated bench; nil: the standard one for the mode
 	Faults     []Fault           // that the simulated bench shall have
 	Given      record.Condition
+	FindLag    bool   // by how much the meters lag behind the gate's, with the first device
 	SkipChecks string // why the bench is not checked first; "": it is
 
 	Operator, Fixture, Session string
 
+	Input    lineReader                                           // stdin, where it is no terminal: typed readings
 	Keyboard func() (keys <-chan rune, restore func(), err error) // nil, or no keys: no terminal
 	Size     func() (width, height int)
 	Raw      io.Writer // the terminal while the keyboard is in use
@@ -49,7 +52,6 @@ type sweeper struct {
 	rq      SweepRequest
 	roles   []string
 	limits  acquire.Limits
-	timing  map[string]acquire.Timing
 	events  chan acquire.Event
 	keys    <-chan rune
 	picture *screen.Live
@@ -60,11 +62,13 @@ type sweeper struct {
 	faults      faultPlan
 	drive       *driver // of the device in the fixture; nil: none
 	lock        *acquire.Interlock
+	typed       bool                      // the readings are typed by a person
+	lagged      map[string]acquire.Timing // of meters whose lag was found
 	scale       map[string]float64
-	swap        map[string]string // roles whose lines are exchanged
+	swap        map[string]string // roles of the bench file whose lines are exchanged
+	file        *bench.Bench      // as it was read, with nothing exchanged
 	lines       []string          // what was said, newest first
 	beeps       int
-	control     bool
 	trouble     error // that ended a device
 	doc         report.SweepDoc
 }
@@ -80,6 +84,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 		return err
 	}
 	defer func() { err = errors.Join(err, w.sim.close()) }()
+	if err := w.storeApart(env); err != nil {
+		return err
+	}
 	given := merge(rq.Given, b.Given)
 	if w.sitting, err = env.openSitting(ctx, sittingRequest{
 		Lot: rq.Lot, Bench: b, Given: given, Operator: rq.Operator, Fixture: rq.Fixture, Session: rq.Session, Ambient: ambient(given),
@@ -97,19 +104,11 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 	if err := w.terminal(); err != nil {
 		return err
 	}
-	ctx, stop := context.WithCancel(ctx)
-	heard := make(chan error, 1)
-	go func() {
-		heard <- acquire.Listen(ctx, Sources(b), w.started, func(e acquire.Event) {
-			select {
-			case w.events <- e:
-			case <-ctx.Done():
-			}
-		})
-	}()
-	err = w.work(ctx)
-	stop()
-	<-heard
+	if w.typed {
+		err = w.typedWork(ctx)
+	} else {
+		err = w.listening(ctx, Sources(b))
+	}
 	restored := w.restore()
 	if errors.Is(err, errQuit) {
 		err = nil
@@ -120,6 +119,31 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 	return errors.Join(err, restored)
 }
 
+// listening does the work while the lines of the bench are listened to.
+func (w *sweeper) listening(ctx context.Context, sources []acquire.Source) error {
+	inner, stop := context.WithCancelCause(ctx)
+	heard := make(chan struct{})
+	go func() {
+		defer close(heard)
+		err := acquire.Listen(inner, sources, w.started, func(e acquire.Event) {
+			select {
+			case w.events <- e:
+			case <-inner.Done():
+			}
+		})
+		if err != nil && inner.Err() == nil { // a source that cannot be used
+			stop(&Failure{Code: ExitInstrument, Err: err, Hint: "gatesill help bench-file shows every key"})
+		}
+	}()
+	err := w.work(inner)
+	if cause := context.Cause(inner); cause != nil && ctx.Err() == nil {
+		err = cause
+	}
+	stop(nil)
+	<-heard
+	return err
+}
+
 // findBench reads the bench file, or starts the simulated bench.
 func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error) {
 	rq := &w.rq
@@ -128,8 +152,8 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 		if err != nil {
 			return nil, err
 		}
-		for _, m := range b.Overdue(time.Now().UTC().Format(time.DateOnly)) {
-			env.warn("the calibration of the %s meter %s was due on %s [%s]", m.Role, report.Clean(m.Name), m.Due, fit.CodeOverdue)
+		for _, text := range lapsed(b, time.Now().UTC().Format(time.DateOnly)) {
+			env.warn("%s [%s]", report.Clean(text), fit.CodeOverdue)
 		}
 		for _, text := range b.Cautions() {
 			env.warn("%s", report.Clean(text))
@@ -187,6 +211,21 @@ func (w *sweeper) findBench(ctx context.Context, env *Env) (*bench.Bench, error)
 	return w.sim.bench, nil
 }
 
+// storeApart keeps what a rehearsal invents out of the store in which a person's
+// own lots are, unless a store was named.
+func (w *sweeper) storeApart(env *Env) error {
+	if !w.rq.Rehearsal || env.Store != "" {
+		return nil
+	}
+	path, err := env.path()
+	if err != nil {
+		return err
+	}
+	env.Store = filepath.Join(filepath.Dir(path), "rehearsal.db")
+	env.talk("kept apart from your own lots, in %s; see it with gatesill --store %s spread %s", report.Clean(env.Store), report.Clean(Quote(env.Store)), report.Clean(Quote(w.rq.Lot)))
+	return nil
+}
+
 // ambient is the temperature of the room, where it was given.
 func ambient(c record.Condition) record.Num {
 	if c.TempOf == "ambient" || c.TempOf == "" {
@@ -197,9 +236,13 @@ func ambient(c record.Condition) record.Num {
 
 // prepare settles what the session needs before a line is opened.
 func (w *sweeper) prepare() error {
-	w.timing = Timings(w.bench)
-	for _, m := range w.bench.Meters {
-		w.roles = append(w.roles, m.Role)
+	maps.Copy(w.scale, w.past.scale)
+	maps.Copy(w.swap, w.past.swap)
+	w.file, w.bench = w.bench, exchangedBench(w.bench, w.swap)
+	for i, m := range w.bench.Meters {
+		if w.bench.Lines[i].Path != "" {
+			w.roles = append(w.roles, m.Role)
+		}
 	}
 	l := w.bench.Limits
 	least := func(part, bench record.Num) float64 {
@@ -213,11 +256,23 @@ func (w *sweeper) prepare() error {
 		Vgs: least(w.part.MaxVgs, l.Vgs), Vds: least(w.part.MaxVds, l.Vds), ID: least(w.part.MaxID, l.ID),
 		PD: least(w.part.MaxPD, l.PD), Temp: l.Temp.Or(0),
 	}
+	var err error
+	if w.typed, err = typedBench(w.bench); err != nil {
+		return err
+	}
 	plan := w.plan()
-	if _, err := acquire.NewRunner(plan); err != nil {
-		return &Failure{Code: ExitFailed, Err: err, Hint: "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"}
+	if _, err := acquire.NewRunner(plan); err != nil && !w.typed {
+		hint := "gatesill help bench-file shows every key"
+		if strings.Contains(err.Error(), "limit") {
+			hint = "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"
+		}
+		return &Failure{Code: ExitFailed, Err: err, Hint: hint}
 	}
 	w.lock = acquire.NewInterlock(plan)
+	if w.lock.Blind() {
+		return failed("a current meter, a load meter with the value of the load resistor, or a meter at the drain supply (role \"supply\") shows it",
+			"sweep refused: with the meters of this bench it is never seen that a part may be touched")
+	}
 	if again := w.tellCut(); len(again) > 0 {
 		w.rq.Devices = slices.DeleteFunc(w.rq.Devices, func(d string) bool { return slices.Contains(again, d) })
 		w.rq.Devices = append(again, w.rq.Devices...)
@@ -254,14 +309,9 @@ func (w *sweeper) plan() acquire.Plan {
 }
 
 func (w *sweeper) pairing() acquire.Pairing {
-	return pairingOf(w.rq.Mode, w.timing)
-}
-
-// pairingOf is how readings of a sweep become points.
-func pairingOf(mode acquire.Mode, timing map[string]acquire.Timing) acquire.Pairing {
-	p := acquire.Pairing{Timing: timing, Free: mode == acquire.Free}
-	if mode == acquire.Driven {
-		p.Window = drivenWindow
+	p := pairingOf(w.bench, w.rq.Mode)
+	for role, t := range w.lagged {
+		p.Timing[role] = t
 	}
 	return p
 }
@@ -285,7 +335,10 @@ func (w *sweeper) terminal() error {
 	if keys == nil {
 		w.picture = screen.NewLive(io.Discard, nil, false) // what is said goes to stderr line by line
 		w.restoreKeys = restore
-		if w.sim == nil && (w.rq.SkipChecks == "" || len(w.rq.Devices) != 1) {
+		if w.typed && len(w.rq.Devices) == 0 {
+			return Usage("gatesill sweep LOT DEVICE...", "sweep: stdin is no terminal: name the devices whose readings come in on it")
+		}
+		if !w.typed && w.sim == nil && (w.rq.SkipChecks == "" || len(w.rq.Devices) != 1) {
 			return Usage("--rehearsal needs nobody; so does one DEVICE that sits in the fixture already, with --skip-checks REASON",
 				"sweep: stdin is no terminal, and somebody must change the devices")
 		}

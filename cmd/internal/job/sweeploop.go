@@ -210,9 +210,7 @@ func (w *sweeper) driven(d driven, s stage) {
 		if d.err != nil {
 			w.say("supplies: %v", d.err)
 		}
-		if m, ok := s.(interface{ switchedOff(keeper.OffReport) }); ok {
-			m.switchedOff(d.off)
-		}
+		tellOff(s, d.off)
 	case d.err != nil:
 		s.event(acquire.Event{At: w.elapsed(), Line: d.what + " supply", Role: d.what + " supply", Lost: true, Err: plainKeeper(d.err)})
 	}
@@ -239,6 +237,11 @@ func (w *sweeper) offAlone(r keeper.OffReport, s stage) {
 	w.say("the keeper switched off: %s", r.Reason)
 	w.saw(r)
 	s.event(acquire.Event{At: w.elapsed(), Line: "supplies", Role: "supplies", Lost: true, Err: fmt.Errorf("switched off: %s", r.Reason)})
+	tellOff(s, r)
+}
+
+// tellOff tells a stage of the off state, where it waits for it.
+func tellOff(s stage, r keeper.OffReport) {
 	if m, ok := s.(interface{ switchedOff(keeper.OffReport) }); ok {
 		m.switchedOff(r)
 	}
@@ -288,12 +291,13 @@ func (w *sweeper) beep(s acquire.Sound) {
 // values shows the readings of every meter.
 func (w *sweeper) values(latest map[string]acquire.Shown) []screen.Value {
 	var out []screen.Value
-	for i, role := range w.roles {
+	for _, m := range w.bench.Meters {
+		role := m.Role
 		s, ok := latest[role]
 		if !ok {
 			continue
 		}
-		v := screen.Value{Role: role, Label: w.bench.Meters[i].Name, Age: s.Age, Stale: s.Stale, Note: s.Why}
+		v := screen.Value{Role: role, Label: m.Name, Age: s.Age, Stale: s.Stale, Note: s.Why}
 		if math.IsInf(s.Age, 0) {
 			v.Age = math.NaN()
 		}

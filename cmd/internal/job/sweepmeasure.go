@@ -227,6 +227,11 @@ func (w *sweeper) device(ctx context.Context, device string) error {
 	case err != nil:
 		return err
 	}
+	if w.rq.FindLag && w.lagged == nil {
+		if err := w.findLag(ctx, device); err != nil {
+			return err
+		}
+	}
 	for {
 		again, err := w.measure(ctx, device)
 		if err != nil || !again {
@@ -331,13 +336,19 @@ func (w *sweeper) result(ctx context.Context, device string, sw *record.Sweep) f
 		r.State, r.Why = fit.Declined, "no point was taken"
 		return r
 	}
+	s := w.sheetOf(device, sw)
+	r := fit.One(curveOf(sw), setupOf(&s, sw, lastDigitsOf(&s)))
+	r.Choose("auto")
+	return r
+}
+
+// sheetOf is a sheet with that one sweep.
+func (w *sweeper) sheetOf(device string, sw *record.Sweep) report.Sheet {
 	s := report.Sheet{Lot: w.lot, Part: w.part, Devices: []report.Device{{
 		Device: record.Device{Name: device}, Sweeps: []report.Sweep{{Sweep: *sw, Curve: curveOf(sw)}},
 	}}}
 	currents(&s, w.rq.At)
-	r := fit.One(curveOf(sw), setupOf(&s, sw, lastDigitsOf(&s)))
-	r.Choose("auto")
-	return r
+	return s
 }
 
 // tellResult says in a line what came of a device.

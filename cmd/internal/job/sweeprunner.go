@@ -115,7 +115,7 @@ func (m *measuring) obey(orders []acquire.Order) {
 		case acquire.Rescaled:
 			w.scale[o.Role] = o.Factor
 			w.lock.SetScale(o.Role, o.Factor)
-			_ = w.sitting.event("scale", "%s %g", o.Role, o.Factor)
+			_ = w.sitting.event(eventScale, "%s", scaleText(o.Role, o.Factor))
 		case acquire.Noted:
 			m.trouble = m.trouble || slices.Contains([]string{"lost", "silent", "prefix", "frames", "gate", "drain", "stuck"}, o.Kind)
 			_ = w.sitting.event(o.Kind, "%s", o.Text)

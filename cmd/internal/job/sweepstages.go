@@ -301,15 +301,16 @@ func (w *sweeper) startCheck(ctx context.Context, off float64) error {
 // repeated.
 func (w *sweeper) settleStart(ctx context.Context, r acquire.StartResult) (again bool, err error) {
 	swapped := r.Exchange != [2]string{}
-	exchange := func() {
+	exchanged := func() {
 		a, b := r.Exchange[0], r.Exchange[1]
-		w.swap[a], w.swap[b] = b, a
+		exchange(w.swap, a, b)
+		w.bench = exchangedBench(w.file, w.swap)
 		w.say("the lines of the %s and the %s meter count as exchanged in this session; put the bench file right", a, b)
-		_ = w.sitting.event("exchange", "%s, %s", a, b)
+		_ = w.sitting.event(eventExchange, "%s", exchangeText(a, b))
 	}
 	if w.keys == nil {
 		if swapped && w.env.Yes {
-			exchange()
+			exchanged()
 			return true, nil
 		}
 		hint := "put the leads right and begin again"
@@ -335,7 +336,7 @@ func (w *sweeper) settleStart(ctx context.Context, r acquire.StartResult) (again
 	case 'q':
 		return false, errQuit
 	case 'e':
-		exchange()
+		exchanged()
 	case 'i':
 		return false, w.sitting.event("unchecked", "%s", r.Text)
 	}
