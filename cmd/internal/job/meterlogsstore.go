@@ -44,6 +44,16 @@ func (im *importer) storeLogs(ctx context.Context, set *logSet) error {
 		if err != nil {
 			return err
 		}
+		shown := shownRanges{}
+		for _, list := range set.readings {
+			for _, reading := range list {
+				shown.note(reading)
+			}
+		}
+		var meters []record.Instrument
+		if im.bench != nil {
+			meters = im.bench.Meters
+		}
 		next := im.next
 		for i := range f.Sweeps {
 			next++
@@ -53,9 +63,7 @@ func (im *importer) storeLogs(ctx context.Context, set *logSet) error {
 				device = im.have[f.Sweeps[i].Device]
 			}
 			r.LotID, r.DeviceID, r.SessionID, r.SourceID, r.Position = lot.ID, device.ID, session.ID, src.ID, next
-			if im.bench != nil {
-				r.Instruments = im.bench.Meters
-			}
+			r.Instruments = shown.complete(meters)
 			if err := im.storeSweep(tx, r, set.readings[i]); err != nil {
 				return fmt.Errorf("sweep %d of %d: %w", i+1, len(f.Sweeps), err)
 			}

@@ -415,55 +415,8 @@ func (s *sitting) close() error {
 	return storeFailure(err)
 }
 
-// instruments are those of the bench file. A meter without ranges gets what it
-// was seen to show, without an accuracy statement.
-func (s *sitting) instruments() []record.Instrument {
-	out := slices.Clone(s.bench.Meters)
-	for i := range out {
-		if len(out[i].Ranges) == 0 {
-			out[i].Ranges = s.meters.ranges(out[i].Role)
-		}
-	}
-	return out
-}
-
-// shownRanges is what the meters showed so far: by role and step of the display
-// the greatest reading.
-type shownRanges map[string]map[float64]float64
-
-func (m shownRanges) note(r record.Reading) {
-	digit, ok := r.Digit.Get()
-	x, number := r.Value.Get()
-	if !ok || !number || digit <= 0 || r.Refused != "" {
-		return
-	}
-	if m[r.Role] == nil {
-		m[r.Role] = map[float64]float64{}
-	}
-	m[r.Role][digit] = math.Max(m[r.Role][digit], math.Abs(x))
-}
-
-// ranges lists them ascending, as ranges of an instrument of which only the step
-// of the display is known.
-func (m shownRanges) ranges(role string) []record.RangeAccuracy {
-	var digits []float64
-	for d := range m[role] {
-		digits = append(digits, d)
-	}
-	slices.Sort(digits)
-	var out []record.RangeAccuracy
-	for i, d := range digits {
-		top := m[role][d]
-		if i == len(digits)-1 {
-			top = math.MaxFloat64
-		}
-		if n := len(out); n > 0 && top <= out[n-1].Top {
-			continue
-		}
-		out = append(out, record.RangeAccuracy{Top: top, Resolution: d})
-	}
-	return out
-}
+// instruments are those of the bench file, with what they were seen to show.
+func (s *sitting) instruments() []record.Instrument { return s.meters.complete(s.bench.Meters) }
 
 // tellCut says what an earlier program left unfinished, and gives the devices that are
 // measured again: of those named, or all when none is named.
