@@ -3,6 +3,7 @@ package page
 import (
 	"fmt"
 	"html/template"
+	"math"
 	"slices"
 	"strconv"
 	"strings"
@@ -79,19 +80,7 @@ func (v *view) meters(k *known) {
 	}
 	t := &table{Caption: "Instruments", Heads: []head{{"role", false}, {"instrument", false}, {"accuracy statement", false}, {"calibrated", false}, {"due", false}, {"sweeps", true}}}
 	for _, m := range list {
-		var ranges []string
-		for _, r := range m.Ranges {
-			unit := map[string]string{"gate": "V", "load": "V", "drain": "V", "supply": "V", "current": "A", "temperature": "°C"}[m.Role]
-			text := fmt.Sprintf("± (%s %% + %s counts of %s)", strconv.FormatFloat(r.Percent, 'g', -1, 64), strconv.FormatFloat(r.Counts, 'g', -1, 64), report.FormatGiven(r.Resolution, unit))
-			if r.Top > 0 && isNumber(r.Top) {
-				text += " up to " + report.FormatGiven(r.Top, unit)
-			}
-			ranges = append(ranges, text)
-		}
-		statement := strings.Join(ranges, "; ")
-		if statement != "" && m.Coverage != "" {
-			statement += " (" + coverageWords(m.Coverage) + ")"
-		}
+		statement := statementWords(m.Instrument)
 		due := optional(m.Due)
 		if m.overdue != "" {
 			due = cell{Text: plain(m.Due) + "<strong> overdue when used</strong>"}
@@ -101,11 +90,39 @@ func (v *view) meters(k *known) {
 	v.Meters = t
 }
 
+// statementWords is the accuracy statement of a meter, range by range; where only the
+// step of its display is known it says that there is none.
+func statementWords(m record.Instrument) string {
+	unit := map[string]string{"gate": "V", "load": "V", "drain": "V", "supply": "V", "current": "A", "temperature": "°C"}[m.Role]
+	stated := false
+	var ranges []string
+	for _, r := range m.Ranges {
+		text := "display step " + report.FormatGiven(r.Resolution, unit)
+		if r.Percent > 0 || r.Counts > 0 {
+			stated = true
+			text = fmt.Sprintf("± (%s %% + %s counts of %s)", strconv.FormatFloat(r.Percent, 'g', -1, 64), strconv.FormatFloat(r.Counts, 'g', -1, 64), report.FormatGiven(r.Resolution, unit))
+		}
+		if r.Top > 0 && r.Top < math.MaxFloat64 {
+			text += " up to " + report.FormatGiven(r.Top, unit)
+		}
+		ranges = append(ranges, text)
+	}
+	statement := strings.Join(ranges, "; ")
+	switch {
+	case statement == "":
+	case !stated:
+		statement = "none; " + statement
+	case m.Coverage != "":
+		statement += " (" + coverageWords(m.Coverage) + ")"
+	}
+	return statement
+}
+
 func coverageWords(c string) string {
 	switch c {
 	case "limit":
 		return "limit of error"
-	case "k2":
+	case "k=2":
 		return "k = 2"
 	}
 	return c

@@ -57,9 +57,8 @@ func (l *Live) Show(m Model) error {
 	}
 	b.WriteString(home)
 	// Every line is overwritten and its end erased, so that nothing flickers; the
-	// last one ends in no line feed, which would scroll. The last column stays free:
-	// where the cursor stands on it, erasing the line's end would take its sign away.
-	lines := draw(m, max(width-1, 1), height, l.colour)
+	// last one ends in no line feed, which would scroll.
+	lines := draw(m, width, height, l.colour)
 	for i, line := range lines {
 		if i > 0 {
 			b.WriteString("\r\n")
@@ -70,6 +69,9 @@ func (l *Live) Show(m Model) error {
 		}
 	}
 	if len(lines) < height {
+		if len(lines) > 0 {
+			b.WriteString("\r\n")
+		}
 		b.WriteString(pageEnd)
 	}
 	_, err := io.WriteString(l.w, b.String())

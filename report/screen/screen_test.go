@@ -284,14 +284,14 @@ func TestLive(t *testing.T) {
 	short := Model{Title: "short", Lines: []string{"one line"}}
 	for i, m := range []Model{sweep(), short, sweep(), {}, sweep()} {
 		require.NoError(t, l.Show(m))
-		require.Equal(t, drawn(t, m, 79, 24, false), term.text(), i)
+		require.Equal(t, drawn(t, m, 80, 24, false), term.text(), i)
 	}
 	require.Equal(t, 1, term.erased, "erased at the start only")
 	require.True(t, term.second)
 	require.False(t, term.cursor)
 	w, h = 60, 20
 	require.NoError(t, l.Show(sweep()))
-	require.Equal(t, drawn(t, sweep(), 59, 20, false), term.text())
+	require.Equal(t, drawn(t, sweep(), 60, 20, false), term.text())
 	require.NoError(t, l.Close())
 	require.NoError(t, l.Close())
 	require.False(t, term.second)
