@@ -18,6 +18,7 @@ type Model struct {
 	Title       string // what is being done: "sweep  lot bag1  device D7"
 	Status      string // at the right of the title: "7 of 25"
 	Instruction string // what to do now, one line
+	Keys        string // the keys that do something now, one line; "" not shown
 
 	Waiting float64 // s still to wait; 0: nothing is waited for
 	Wait    float64 // s, the whole of it; 0 not known
@@ -186,6 +187,9 @@ func headParts(m Model, width int) []part {
 			}
 		}})
 	}
+	if m.Keys != "" {
+		out = append(out, part{1, func(c *canvas, y int) { c.textIn(2, y, width-2, m.Keys, faint) }})
+	}
 	if m.Waiting > 0 {
 		out = append(out, part{1, func(c *canvas, y int) {
 			text := "wait " + seconds(m.Waiting)
@@ -255,17 +259,11 @@ func powerParts(p Power, width int) []part {
 }
 
 func lineParts(lines []string, width int) []part {
-	out := make([]part, len(lines))
-	for i, l := range lines {
-		rows := wrap(l, width)
-		if len(rows) > 1 {
-			rows = wrapHanging(l, width, min(2, width/3))
+	var out []part
+	for _, l := range lines {
+		for _, row := range wrapHanging(l, width, min(2, width-1)) {
+			out = append(out, part{1, func(c *canvas, y int) { c.text(0, y, row, plain) }})
 		}
-		out[i] = part{len(rows), func(c *canvas, y int) {
-			for k, r := range rows {
-				c.text(0, y+k, r, plain)
-			}
-		}}
 	}
 	return out
 }

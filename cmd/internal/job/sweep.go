@@ -264,11 +264,7 @@ func (w *sweeper) prepare() error {
 	}
 	plan := w.plan()
 	if _, err := acquire.NewRunner(plan); err != nil && !w.typed {
-		hint := "gatesill help bench-file shows every key"
-		if strings.Contains(err.Error(), "limit") {
-			hint = "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"
-		}
-		return &Failure{Code: ExitFailed, Err: err, Hint: hint}
+		return &Failure{Code: ExitFailed, Err: err, Hint: w.planHint(plan, err)}
 	}
 	w.lock = acquire.NewInterlock(plan)
 	if !w.typed && w.lock.Blind() {
@@ -280,6 +276,19 @@ func (w *sweeper) prepare() error {
 		w.rq.Devices = append(again, w.rq.Devices...)
 	}
 	return nil
+}
+
+// planHint says what helps against the refusal of a plan.
+func (w *sweeper) planHint(p acquire.Plan, err error) string {
+	switch {
+	case strings.Contains(err.Error(), "limit"):
+		return "limits stand in [limits] of the bench file, or with the part: gatesill lot edit " + Quote(w.lot.Name) + " --max-vgs 10 --max-id 1 --max-pd 5"
+	case p.Mode == acquire.Driven && !p.DrivesGate:
+		return "a [[supply]] with drives = \"gate\" in the bench file (gatesill help bench-file), or --by-hand"
+	case p.Mode == acquire.AtSpot && !p.At.IsKnown():
+		return "--at 10mA"
+	}
+	return "gatesill help sweep"
 }
 
 // plan is the plan of a sweep with what is known now.

@@ -99,6 +99,9 @@ func (w *sweeper) lead(ctx context.Context, s stage) error {
 			return ctx.Err()
 		}
 	}
+	if q, ok := s.(interface{ quits() bool }); ok && q.quits() {
+		return errQuit
+	}
 	return w.draw(s.show(w.elapsed()))
 }
 

@@ -7,6 +7,7 @@ import (
 	"slices"
 	"strings"
 	"time"
+	"unicode/utf8"
 
 	"gatesill/acquire"
 	"gatesill/fit"
@@ -98,10 +99,34 @@ func (w *sweeper) caution(ctx context.Context, steps ...acquire.Step) error {
 		}
 		return w.sitting.event(kind, "%d", len(texts))
 	}
-	if err := w.lead(ctx, &cautioning{w: w, texts: texts}); err != nil {
-		return err
+	for _, page := range pages(texts, w.rq.Size) {
+		if err := w.lead(ctx, &cautioning{w: w, texts: page}); err != nil {
+			return err
+		}
 	}
 	return w.sitting.event(kind, "%d", len(texts))
+}
+
+// pages splits cautions so that each screen shows its own in full: what is below
+// the edge would be taken note of without having been read.
+func pages(texts []string, size func() (width, height int)) (out [][]string) {
+	width, height := 80, 24
+	if size != nil {
+		if w, h := size(); w > 0 && h > 0 {
+			width, height = w, h
+		}
+	}
+	const head, lead = 4, 11 // rows above the cautions; columns in front of one
+	room := 0
+	for _, t := range texts {
+		rows := 1 + utf8.RuneCountInString(t)/max(width-lead-12, 10) // words break early
+		if len(out) == 0 || rows > room {
+			out, room = append(out, nil), max(height-head, 1)
+		}
+		out[len(out)-1] = append(out[len(out)-1], t)
+		room -= rows
+	}
+	return out
 }
 
 // cautioning shows cautions until the operator has taken note of them.
@@ -109,14 +134,19 @@ type cautioning struct {
 	w     *sweeper
 	texts []string
 	ended bool
+	quit  bool
 }
 
 func (s *cautioning) event(acquire.Event) {}
 func (s *cautioning) tick(float64)        {}
-func (s *cautioning) key(k rune)          { s.ended = s.ended || k == ' ' || k == keyEnter }
-func (s *cautioning) over() bool          { return s.ended }
+func (s *cautioning) key(k rune) {
+	s.quit = k == 'q'
+	s.ended = s.ended || s.quit || k == ' ' || k == keyEnter
+}
+func (s *cautioning) over() bool  { return s.ended }
+func (s *cautioning) quits() bool { return s.quit }
 func (s *cautioning) show(float64) screen.Model {
-	m := screen.Model{Title: "  before you begin", Instruction: "read these, then press space"}
+	m := screen.Model{Title: "  before you begin", Instruction: "read these, then press space (q ends the session)"}
 	for _, t := range s.texts {
 		m.Notices = append(m.Notices, screen.Notice{Text: t})
 	}
@@ -208,7 +238,12 @@ func (w *sweeper) place(ctx context.Context, device string) error {
 	case skip:
 		return errSkip
 	case w.keys == nil && len(lack) > 0:
-		return &Failure{Code: ExitInstrument, Err: fmt.Errorf("device %s: the fixture is not seen to be safe: %s", report.Clean(device), strings.Join(lack, "; "))}
+		who := "device " + report.Clean(device)
+		if device == "" {
+			who = "after the last device"
+		}
+		return &Failure{Code: ExitInstrument, Err: fmt.Errorf("%s: the fixture is not seen to be safe: %s", who, strings.Join(lack, "; ")),
+			Hint: "gate to its off voltage and drain supply off by hand, before anything is touched"}
 	}
 	if w.sim != nil {
 		return w.sim.insert(device)

@@ -186,6 +186,18 @@ func (m *measuring) key(k rune) {
 	}
 }
 
+// keysNow names the keys that do something in this kind of sweep; that for a lost
+// prefix is told where there is one.
+func (m *measuring) keysNow() string {
+	switch m.w.rq.Mode {
+	case acquire.Driven:
+		return "keys: f finish, u last point back, r repeat, k skip, s or q stop"
+	case acquire.AtSpot:
+		return "keys: space take, r repeat, k skip, s or q stop"
+	}
+	return "keys: space take, f finish, u last point back, r repeat, k skip, s or q stop"
+}
+
 func (m *measuring) show(at float64) screen.Model {
 	v := m.r.View(at)
 	s := screen.Model{
@@ -195,8 +207,9 @@ func (m *measuring) show(at float64) screen.Model {
 	if !math.IsNaN(v.Waiting) {
 		s.Waiting, s.Wait = v.Waiting, m.w.rq.Settle.Or(0)
 	}
+	s.Keys = m.keysNow()
 	if m.reason != nil {
-		s.Instruction = m.reason.show(at).Instruction
+		s.Instruction, s.Keys = m.reason.show(at).Instruction, ""
 	}
 	for _, t := range v.Warnings {
 		s.Notices = append(s.Notices, screen.Notice{Stop: v.Level == acquire.Over, Text: t})

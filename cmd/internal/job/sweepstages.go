@@ -72,6 +72,7 @@ type asking struct {
 	other   map[rune]func() // further keys
 	until   func() bool     // over as soon as this holds; nil: on a key
 	ended   bool
+	quit    bool // q: the session is over
 }
 
 func (s *asking) event(e acquire.Event) {
@@ -101,6 +102,10 @@ func (s *asking) key(k rune) {
 		s.ended = true
 		return
 	}
+	if k == 'q' {
+		s.quit, s.ended = true, true
+		return
+	}
 	if k != ' ' && k != keyEnter || s.until != nil {
 		return
 	}
@@ -112,8 +117,17 @@ func (s *asking) key(k rune) {
 	s.ended = true
 }
 func (s *asking) over() bool { return s.ended }
+
+// quits tells whether the session is to be ended.
+func (s *asking) quits() bool { return s.quit }
 func (s *asking) show(at float64) screen.Model {
 	m := screen.Model{Title: s.title, Instruction: s.text(at), Values: s.w.values(s.w.shown())}
+	if len(s.other) == 0 {
+		m.Keys = "keys: space goes on, q ends the session"
+		if s.until != nil {
+			m.Keys = "keys: q ends the session"
+		}
+	}
 	for _, t := range s.lacking(at) {
 		m.Notices = append(m.Notices, screen.Notice{Text: "not seen yet: " + t})
 	}
