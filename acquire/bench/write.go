@@ -117,12 +117,15 @@ func otherLine(i int, known []Found) Question {
 		if slices.ContainsFunc(known, func(f Found) bool { return f.Path == s }) {
 			return "", fmt.Errorf("%s was asked about already", s)
 		}
+		if s == Keyboard {
+			return s, nil
+		}
 		for _, lead := range []string{"tcp:", "usbtmc:", "log:", "/", "COM"} {
 			if rest, ok := strings.CutPrefix(s, lead); ok && rest != "" {
 				return s, nil
 			}
 		}
-		return "", fmt.Errorf("%q is no line: a path, tcp:HOST:PORT, usbtmc:PATH or log:PATH", s)
+		return "", fmt.Errorf("%q is no line: a path, tcp:HOST:PORT, usbtmc:PATH, log:PATH, or keyboard for meters that you read yourself", s)
 	}}
 }
 
@@ -138,11 +141,16 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 		help = append(help, "  "+strings.TrimRight(l, "\n"))
 	}
 	key := func(what string) string { return fmt.Sprintf("line %d: %s", i+1, what) }
+	byPerson := f.Path == Keyboard
 	qs := []Question{{
 		Key: key("speaks"), Text: "How does the meter on " + on + " speak?", Help: append(help, "  skip                     no meter, or not for this bench"),
 		Choices: append(formatNames(), skip),
 	}}
-	format, ok := findFormat(a[key("speaks")])
+	speaks := a[key("speaks")]
+	if byPerson {
+		qs, speaks = nil, "text" // a person types numbers
+	}
+	format, ok := findFormat(speaks)
 	if !ok {
 		return qs
 	}
@@ -161,6 +169,9 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 			}
 			return s, nil
 		}})
+		if byPerson {
+			qs[len(qs)-1].Text = "How many meters do you read and type, in one line a point?"
+		}
 		columns, _ = strconv.Atoi(a[key("columns")])
 	}
 	for c := range columns {
@@ -191,7 +202,7 @@ func lineQuestions(i int, f Found, a Answers, taken map[string]bool) []Question 
 			}})
 		}
 		qs = append(qs, Question{Key: ckey("name"), Text: "Name of the " + role + " meter, as written on it?", Default: role + " meter"})
-		if c == 0 {
+		if c == 0 && !byPerson {
 			qs = append(qs, Question{
 				Key: key("isolated"), Text: "Is its input isolated from the computer's ground?", Choices: []string{"yes", "no", "unsure"},
 			})
@@ -261,7 +272,7 @@ func hasColumns(f meter.Format) bool { return f.Lines || f.Name == "stx" }
 
 // serial tells whether a line has settings.
 func serial(path string) bool {
-	return !strings.HasPrefix(path, "usbtmc:") && !strings.HasPrefix(path, "/dev/usbtmc") && !strings.HasPrefix(path, "tcp:") && !strings.HasPrefix(path, "log:")
+	return !strings.HasPrefix(path, "usbtmc:") && !strings.HasPrefix(path, "/dev/usbtmc") && !strings.HasPrefix(path, "tcp:") && !strings.HasPrefix(path, "log:") && path != Keyboard
 }
 
 // unitOf tells whether text is a unit, with or without prefix.
@@ -292,7 +303,11 @@ func Write(found []Found, a Answers) string {
 	put("pd", a["pd"])
 	for i, f := range allLines(found, a) {
 		key := func(what string) string { return fmt.Sprintf("line %d: %s", i+1, what) }
-		format, ok := findFormat(a[key("speaks")])
+		speaks := a[key("speaks")]
+		if f.Path == Keyboard {
+			speaks = "text"
+		}
+		format, ok := findFormat(speaks)
 		if !ok {
 			continue
 		}

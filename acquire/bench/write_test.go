@@ -90,7 +90,7 @@ func TestWrittenParses(t *testing.T) {
 			case len(q.Choices) > 0:
 				return rapid.SampledFrom(q.Choices).Draw(t, q.Key)
 			case strings.Count(q.Key, " ") == 1 && strings.HasPrefix(q.Key, "line"):
-				return rapid.SampledFrom([]string{None, "tcp:h", "/dev/y", "COM3"}).Filter(func(s string) bool { _, err := q.Check(s); return err == nil }).Draw(t, q.Key)
+				return rapid.SampledFrom([]string{None, "tcp:h", "/dev/y", "COM3", Keyboard}).Filter(func(s string) bool { _, err := q.Check(s); return err == nil }).Draw(t, q.Key)
 			case strings.Contains(q.Key, "name"):
 				return rapid.StringMatching(`[ -~µ\t"\\]*x`).Draw(t, q.Key)
 			case strings.Contains(q.Key, "columns"):

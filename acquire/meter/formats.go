@@ -14,7 +14,7 @@ var Formats = []Format{
 	{Name: "polled-ascii", Text: "asked with D, 14 characters", Settings: "1200 7N2", Bits: 7, Ask: "D", Length: 14, New: newPolled},
 	{Name: "stx", Text: "16 bytes from STX to CR, one-way or asked", Settings: "9600 8N1", Bits: 8, Length: 16, New: newSTX},
 	{Name: "scpi", Text: "replies of SCPI instruments, one or several numbers", Bits: 8, Ask: "READ?", Lines: true, New: newSCPI},
-	{Name: "text", Text: "lines of one or several numbers, as a microcontroller prints them", Bits: 8, Lines: true, New: newText},
+	{Name: "text", Text: "lines of one or several numbers, as microcontrollers print", Bits: 8, Lines: true, New: newText},
 }
 
 // Find gives the format of that name.

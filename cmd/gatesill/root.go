@@ -11,6 +11,7 @@ import (
 	"slices"
 	"strings"
 	"sync"
+	"unicode/utf8"
 
 	"github.com/spf13/cobra"
 	"golang.org/x/term"
@@ -138,8 +139,10 @@ func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error)
 		start()
 		for {
 			fmt.Fprintf(env.Err, "%s\n", report.Clean(q.Text))
-			if len(q.Choices) > 0 {
-				fmt.Fprintf(env.Err, "[%s] ", report.Clean(strings.Join(q.Choices, ", ")))
+			if list := report.Clean(strings.Join(q.Choices, ", ")); utf8.RuneCountInString(list) > 50 {
+				fmt.Fprintf(env.Err, "[%s]\n", list) // the answer starts a line of its own
+			} else if list != "" {
+				fmt.Fprintf(env.Err, "[%s] ", list)
 			}
 			if q.Default != "" {
 				fmt.Fprintf(env.Err, "(Enter: %s) ", report.Clean(q.Default))
@@ -157,6 +160,10 @@ func ask(ctx context.Context, env *job.Env) func(table.Question) (string, error)
 				answer := cmp.Or(strings.TrimSpace(line), q.Default)
 				if slices.Contains(q.Choices, answer) || answer != "" && len(q.Choices) == 0 {
 					return answer, nil
+				}
+				if answer == "" {
+					fmt.Fprintln(env.Err, "An answer is needed.")
+					continue
 				}
 				fmt.Fprintf(env.Err, "%q is none of these.\n", report.Clean(answer))
 			}

@@ -96,8 +96,15 @@ func (k *known) sweeps() (list []drawnSweep, spots int) {
 				continue
 			}
 			drawn++
-			cv := svg.Curve{Name: d.Name, X: sw.Curve.Vg, Y: id, Flag: k.flag(d.Name), Ref: i + 1}
+			vg := sw.Curve.Vg
+			if sw.Curve.Returned { // a line from the end back to it would look like a curve
+				vg, id = vg[:len(vg)-1], id[:len(id)-1]
+			}
+			cv := svg.Curve{Name: d.Name, X: vg, Y: id, Flag: k.flag(d.Name), Ref: i + 1}
 			for _, l := range sw.Result.LeftOut {
+				if l.Index >= len(id) {
+					continue
+				}
 				cv.Out = append(cv.Out, l.Index)
 			}
 			slices.Sort(cv.Out)
@@ -209,6 +216,12 @@ func (v *view) curves(k *known, all []drawnSweep) {
 		text += "."
 	}
 	text += " Points left out of a fit are small crosses."
+	for _, s := range chosen {
+		if k.Devices[s.device].Sweeps[s.sweep].Curve.Returned {
+			text += " The point taken again after a sweep is not drawn."
+			break
+		}
+	}
 	f.Caption = rich(text)
 	f.Data = k.curveData(chosen)
 	v.Curves = f

@@ -295,7 +295,14 @@ func writeBench(ctx context.Context, env *Env, path string) error {
 	for _, c := range b.Cautions() {
 		env.warn("%s", report.Clean(c))
 	}
-	env.talk("wrote %s; gatesill meters --bench %s shows what the meters say", report.Clean(path), report.Clean(path))
+	next := "gatesill meters --bench " + Quote(path) + " shows what the meters say"
+	if typed, err := typedBench(b); err == nil && typed {
+		next = "gatesill sweep LOT --bench " + Quote(path) + " asks for the readings"
+	} else if b.Live() != nil {
+		next = "it names no meter yet: gatesill help bench-file shows how one is written"
+	}
+	env.talk("wrote %s; %s", report.Clean(path), report.Clean(next))
+	env.talk("A sweep with --drive needs a [[supply]] besides: gatesill help bench-file shows one.")
 	return nil
 }
 

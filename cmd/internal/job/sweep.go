@@ -115,6 +115,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 	if errors.Is(err, errQuit) {
 		err = nil
 	}
+	if errors.Is(err, context.Canceled) && !w.typed {
+		env.talk("interrupted: what was read is kept; the same command goes on at the device that was not finished")
+	}
 	if terr := w.conclude(); err == nil {
 		err = terr
 	}
