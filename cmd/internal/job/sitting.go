@@ -426,12 +426,17 @@ func (m shownRanges) ranges(role string) []record.RangeAccuracy {
 	return out
 }
 
-// tellCut says what an earlier program left unfinished, and gives the devices.
-func (s *sitting) tellCut() []string {
+// tellCut says what an earlier program left unfinished, and gives the devices;
+// again says that they are measured again.
+func (s *sitting) tellCut(again bool) []string {
 	var names []string
+	then := " and set aside"
+	if again {
+		then = ", set aside, and it is measured again"
+	}
 	for _, c := range s.cut {
 		names = append(names, c.device)
-		s.env.talk("device %s: its sweep was cut short after %s; these are kept, set aside, and it is measured again", report.Clean(c.device), count(c.points, "point"))
+		s.env.talk("device %s: its sweep was cut short after %s; these are kept%s", report.Clean(c.device), count(c.points, "point"), then)
 	}
 	return names
 }
