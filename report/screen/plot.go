@@ -68,7 +68,7 @@ func (p Plot) axes() (x, y axis, ok bool) {
 		return x, y, true
 	}
 	ey.take(false, 0)
-	return x, whole(ey, 1e-9), true
+	return x, whole(ey, 1e-6), true
 }
 
 // whole widens a range to whole steps of its labels, at least to a width.

@@ -22,7 +22,7 @@ func Sources(b *bench.Bench) []acquire.Source {
 			k = len(out)
 			at[l.Path] = k
 			out = append(out, acquire.Source{
-				Address: l.Path, Settings: l.Settings, Speaks: l.Speaks, Setup: l.Setup, Ask: l.Ask, Every: l.Every.Or(0),
+				Address: l.Path, Settings: l.Settings, Speaks: l.Speaks, Setup: l.Setup, Ask: l.Ask, Every: l.Every.Or(askedEvery(l.Speaks)),
 				Options: meter.Options{Unit: columnUnits(b, l.Path), Separator: l.Separator, Decimal: l.Decimal},
 			})
 		}
@@ -30,6 +30,16 @@ func Sources(b *bench.Bench) []acquire.Source {
 		out[k].Columns = append(out[k].Columns, acquire.SourceColumn{Column: l.Column, Role: in.Role, Meter: in.Name, Unit: bench.RoleUnit(in.Role)})
 	}
 	return out
+}
+
+// askedEvery is the pause between two questions where the bench file names none, s:
+// a fast instrument would fill the store with thousands of readings a second, of
+// which a hand or a settling gate has no use.
+func askedEvery(speaks string) float64 {
+	if speaks == "scpi" {
+		return 0.05
+	}
+	return 0
 }
 
 // columnUnits joins the units that the file gives to the columns of a line; "" when

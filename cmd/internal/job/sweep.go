@@ -18,6 +18,7 @@ import (
 	"gatesill/fit"
 	"gatesill/report"
 	"gatesill/report/screen"
+	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -106,6 +107,9 @@ func Sweep(ctx context.Context, env *Env, rq SweepRequest) (err error) {
 		return err
 	}
 	defer w.restore() // also after a fault of the program; it has been done by then otherwise
+	if err := w.goOn(w.tellCut(w.rq.Devices)); err != nil {
+		return err
+	}
 	if w.typed {
 		err = w.typedWork(ctx)
 	} else {
@@ -265,6 +269,9 @@ func (w *sweeper) prepare() error {
 	if w.typed, err = typedBench(w.bench); err != nil {
 		return err
 	}
+	if w.sim != nil && w.rq.Simulated == nil && w.part.Channel == record.PChannel {
+		return failed("leave --channel p out of the lot of a rehearsal", "lot %s is of a p-channel part; the simulated bench holds n-channel parts only", report.Clean(w.lot.Name))
+	}
 	plan := w.plan()
 	if _, err := acquire.NewRunner(plan); err != nil && !w.typed {
 		return &Failure{Code: ExitFailed, Err: err, Hint: w.planHint(plan, err)}
@@ -274,9 +281,46 @@ func (w *sweeper) prepare() error {
 		return failed("a current meter, a load meter with the value of the load resistor, or a meter at the drain supply (role \"supply\") shows it",
 			"sweep refused: with the meters of this bench it is never seen that a part may be touched")
 	}
-	if again := w.tellCut(w.rq.Devices); len(again) > 0 {
-		w.rq.Devices = slices.DeleteFunc(w.rq.Devices, func(d string) bool { return slices.Contains(again, d) })
-		w.rq.Devices = append(again, w.rq.Devices...)
+	return nil
+}
+
+// goOn puts the devices whose sweeps were cut short first. Where they are among
+// those named, it is the same command that is given again, and what its session
+// has measured of the others is not measured a second time.
+func (w *sweeper) goOn(again []string) error {
+	named := w.rq.Devices
+	if len(again) == 0 || w.keys == nil && w.sim == nil {
+		return nil // without a keyboard, lines and fixture belong to the devices named
+	}
+	var done []string
+	if slices.ContainsFunc(named, func(d string) bool { return slices.Contains(again, d) }) {
+		err := w.db.View(context.Background(), func(tx *store.Tx) error {
+			ds, err := tx.Devices(w.lot.ID)
+			if err != nil {
+				return err
+			}
+			sweeps, err := tx.Sweeps(w.lot.ID, false)
+			for _, d := range ds {
+				if slices.ContainsFunc(sweeps, func(s record.Sweep) bool {
+					return s.DeviceID == d.ID && s.SessionID == w.session.ID && !s.Excluded && s.Why == ""
+				}) && slices.Contains(named, d.Name) && !slices.Contains(again, d.Name) {
+					done = append(done, d.Name)
+				}
+			}
+			return err
+		})
+		if err != nil {
+			return storeFailure(err)
+		}
+	}
+	if len(done) > 0 {
+		w.env.talk("measured before the cut, and left out now: %s", report.Clean(strings.Join(done, ", ")))
+	}
+	w.rq.Devices = slices.Clone(again)
+	for _, d := range named {
+		if !slices.Contains(again, d) && !slices.Contains(done, d) {
+			w.rq.Devices = append(w.rq.Devices, d)
+		}
 	}
 	return nil
 }
