@@ -39,6 +39,7 @@ type sitting struct {
 	past  agreed        // in a session that is gone on with
 	sweep *record.Sweep // being measured; nil: none
 	cut   []cutShort    // sweeps that an earlier program left unfinished
+	cutIn []string      // their sessions, one each
 }
 
 // cutShort is a sweep that a crash or a power cut ended.
@@ -240,6 +241,7 @@ func (s *sitting) takeUpSweep(tx *store.Tx, sw *record.Sweep, benchID string, no
 		return err
 	}
 	s.cut = append(s.cut, cutShort{device.Name, points})
+	s.cutIn = append(s.cutIn, sw.SessionID)
 	if sw.SessionID == "" {
 		return nil
 	}

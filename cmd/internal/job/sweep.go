@@ -302,7 +302,7 @@ func (w *sweeper) goOn(again []string) error {
 			sweeps, err := tx.Sweeps(w.lot.ID, false)
 			for _, d := range ds {
 				if slices.ContainsFunc(sweeps, func(s record.Sweep) bool {
-					return s.DeviceID == d.ID && s.SessionID == w.session.ID && !s.Excluded && s.Why == ""
+					return s.DeviceID == d.ID && slices.Contains(w.cutIn, s.SessionID) && !s.Excluded && s.Why == ""
 				}) && slices.Contains(named, d.Name) && !slices.Contains(again, d.Name) {
 					done = append(done, d.Name)
 				}
