@@ -99,9 +99,8 @@ func (c *PrefixCheck) Look(p Point, digit float64) PrefixVerdict {
 	}
 	switch {
 	case !math.IsNaN(p.Vl):
-		// So little voltage tells nothing, unless the current meter claims a lot more.
-		if math.Abs(p.Vl) < leastLoad && !(math.Abs(p.Id)*rl > 25*leastLoad) {
-			return none
+		if math.Abs(p.Vl) < leastLoad {
+			return c.claims(p, rl)
 		}
 		ref = math.Abs(p.Vl) / rl
 	case !math.IsNaN(vd) && !math.IsNaN(vdd):
@@ -135,6 +134,27 @@ func (c *PrefixCheck) Look(p Point, digit float64) PrefixVerdict {
 		v.Text = fmt.Sprintf("the current meter says %s, %s says %s: is R_L %s, and is each meter where the bench file says?",
 			show(p.Id, "A"), how, show(ref, "A"), ohms(rl))
 	}
+	return v
+}
+
+// claims judges a current where the load resistor has too little voltage to tell it,
+// but could not have so little if the current were what its meter says.
+func (c *PrefixCheck) claims(p Point, rl float64) PrefixVerdict {
+	id, vl := math.Abs(p.Id), math.Abs(p.Vl)
+	v := PrefixVerdict{Ratio: math.NaN()}
+	if !(id*rl > 5*leastLoad) {
+		return v
+	}
+	for _, x := range prefixes {
+		if would := id * x.factor * rl; x.ratio > 1 && id*x.factor > 1e-5 && math.Abs(would-vl) < 1e-3+0.3*vl {
+			v.Ratio, v.Refuse, v.Factor, v.Key = x.ratio, true, x.factor, x.key
+			v.Text = fmt.Sprintf("the current meter says %s, which would put %s across the load resistor, and there is %s: a prefix is lost; nothing is stored; one key puts the prefix right: %s",
+				show(p.Id, "A"), show(id*rl, "V"), show(vl, "V"), x.key)
+			return v
+		}
+	}
+	v.Text = fmt.Sprintf("the current meter says %s, which would put %s across the load resistor, and there is %s: is the load meter's lead on, and each meter where the bench file says?",
+		show(p.Id, "A"), show(id*rl, "V"), show(vl, "V"))
 	return v
 }
 

@@ -18,6 +18,7 @@ func TestPrefixBelowLeastLoad(t *testing.T) {
 		{133e-6, 0.002, false},   // right
 		{200e-6, 0.002, false},   // one count of V_L is 0.07 mA
 		{133e-6, 0, false},       // below its display
+		{0.020, 0, true},         // 20 uA shown as mA: 0.3 mV, below the display of the load meter
 		{0.140, 0, false},        // no prefix explains that: a lead is off
 		{0.0005, 0.010, false},   // 25 % low, below what is judged
 		{0.000133e6, 2e-3, true}, // shown a million times too great

@@ -175,6 +175,15 @@ func (e *ears) contradicted(role string) bool {
 	return false
 }
 
+// frozen reports whether the current stands still on its display while the voltage
+// across the load resistor has moved by a tenth or more.
+func (e *ears) frozen() bool {
+	v, o := e.of(Current), e.of(Load)
+	was, ok := v.others[Load]
+	d := math.Abs(o.value - was)
+	return v.same >= 3 && ok && o.number && d > 0.1*math.Abs(o.value) && !(d <= 5*o.digit)
+}
+
 // mark makes counts of numbers start again.
 func (e *ears) mark() {
 	for _, v := range e.voices {

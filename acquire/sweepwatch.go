@@ -95,6 +95,11 @@ func (r *Runner) watch() {
 		r.level = w.Level
 		return
 	}
+	if r.verdict.Refuse && r.ears.frozen() {
+		// No prefix: to multiply what stands still would make a current of it.
+		r.verdict = PrefixVerdict{Ratio: r.verdict.Ratio, Text: "the current meter shows the same digits while the load voltage moves: is it on hold?"}
+		r.trouble("stuck", r.verdict.Text)
+	}
 	if r.verdict.Refuse && !was.Refuse {
 		if r.plan.driven() { // nothing may go on by itself, and nobody may be there
 			r.stop("prefix", r.verdict.Text)

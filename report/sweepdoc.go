@@ -55,11 +55,11 @@ func SweepTable(w io.Writer, doc SweepDoc, style Style) error {
 	var names, points, vth, idle, said []string
 	for _, d := range doc.Devices {
 		text := d.Why
-		if d.Result.State != fit.Measured && d.Result.Why != "" {
+		if d.Complete && d.Result.State != fit.Measured && d.Result.Why != "" {
 			text = joinWords(text, d.Result.Why)
 		}
 		for _, warning := range d.Result.Warnings {
-			if warning.Code != fit.CodeHeatingNotChecked && warning.Code != fit.CodeNoAccuracy {
+			if d.Complete && warning.Code != fit.CodeHeatingNotChecked && warning.Code != fit.CodeNoAccuracy {
 				text = joinWords(text, warning.Text)
 			}
 		}
@@ -69,7 +69,7 @@ func SweepTable(w io.Writer, doc SweepDoc, style Style) error {
 	}
 	p.grid(grid{style: style, cols: []column{
 		{head: "device", cells: names}, {head: "points", cells: points, right: true},
-		{head: "V_GS(th)", cells: vth}, {head: "V_GS idle", cells: idle}, {head: "", cells: said, wrap: 22},
+		{head: "V_GS(th)", cells: vth}, {head: "V_GS idle", cells: idle}, {head: "outcome", cells: said, wrap: 22},
 	}})
 	return p.err
 }

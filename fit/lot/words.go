@@ -164,7 +164,7 @@ func gapWords(c *column, p parting) string {
 
 // estimatorWords names the robust spread and says why it is used.
 func estimatorWords(n int) string {
-	text := "robust spread = 1.4826 × MAD, the median distance from the median, which a few odd devices cannot widen"
+	text := "robust spread = 1.4826 × MAD, the median distance from the median, which a few odd devices cannot widen (and not below what the readings themselves are uncertain by)"
 	switch {
 	case n < 3:
 		return text

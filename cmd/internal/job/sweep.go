@@ -71,7 +71,8 @@ type sweeper struct {
 	file        *bench.Bench      // as it was read, with nothing exchanged
 	lines       []string          // what was said, newest first
 	beeps       int
-	trouble     error // that ended a device
+	trouble     error // with a meter or a supply, that ended a device
+	unfinished  error // what else ended a sweep before its end
 	doc         report.SweepDoc
 }
 
@@ -434,6 +435,9 @@ func (w *sweeper) conclude() error {
 	}
 	if err == nil && w.trouble != nil {
 		return &Failure{Code: ExitInstrument, Err: w.trouble, Hint: w.metersVerb() + " shows what each meter says"}
+	}
+	if err == nil && w.unfinished != nil {
+		return &Failure{Code: ExitFailed, Err: w.unfinished, Hint: "what was taken is kept and set aside; gatesill device show DEVICE --lot " + Quote(w.lot.Name) + " says why"}
 	}
 	return err
 }

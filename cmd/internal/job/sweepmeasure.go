@@ -354,6 +354,9 @@ func (w *sweeper) askAgain(ctx context.Context, m *measuring) (again bool, err e
 	if quit {
 		return false, errQuit
 	}
+	if again {
+		w.trouble, w.unfinished = nil, nil
+	}
 	if n := len(w.doc.Devices); again && n > 0 {
 		last := w.doc.Devices[n-1]
 		w.doc.Devices = w.doc.Devices[:n-1]
@@ -397,6 +400,10 @@ func (w *sweeper) tellResult(d report.SweptDevice) {
 		if q.q.Ok() {
 			parts = append(parts, q.name+" "+report.FormatQuantity(q.q, "V"))
 		}
+	}
+	if len(parts) == 0 && !d.Complete {
+		w.say("%s: set aside after %s: %s", d.Device, count(d.Points, "point"), d.Why)
+		return
 	}
 	if len(parts) == 0 {
 		parts = append(parts, first(d.Result.Why, string(d.Result.State)))

@@ -22,6 +22,7 @@ type measuring struct {
 	doneAt  float64
 	held    string  // why nothing goes on, where nobody is there
 	heldAt  float64 // since when
+	asked   bool    // the operator ended it
 	had     int     // points taken
 	hadAt   float64 // since when there are so many
 	nudged  float64 // when the simulated hand last turned a little
@@ -138,6 +139,9 @@ func (m *measuring) obey(orders []acquire.Order) {
 				o.Why = m.held
 			}
 			m.done, m.doneAt = &o, w.elapsed()
+			if !o.Complete && !o.Skipped && !m.asked && w.unfinished == nil {
+				w.unfinished = fmt.Errorf("device %s: %s", m.device, o.Why)
+			}
 			if o.Complete || o.Skipped {
 				m.trouble = false
 			}
@@ -182,6 +186,7 @@ func (m *measuring) key(k rune) {
 		return
 	}
 	if name, ok := names[k]; ok {
+		m.asked = m.asked || name == acquire.KeyStop && m.held == ""
 		m.obey(m.r.Key(acquire.Key{Name: name}, at))
 	}
 }
