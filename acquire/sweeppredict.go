@@ -1,6 +1,7 @@
 package acquire
 
 import (
+	"cmp"
 	"math"
 	"slices"
 
@@ -33,15 +34,7 @@ func nodes(points []Point, sign float64, current func(Point) float64) []node {
 			ns = append(ns, node{u, math.Abs(i)})
 		}
 	}
-	slices.SortStableFunc(ns, func(a, b node) int {
-		switch {
-		case a.u < b.u:
-			return -1
-		case a.u > b.u:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(ns, func(a, b node) int { return cmp.Compare(a.u, b.u) })
 	return ns
 }
 

@@ -1,6 +1,7 @@
 package replay
 
 import (
+	"cmp"
 	"fmt"
 	"math"
 	"slices"
@@ -274,14 +275,6 @@ func (s *Session) Readings(from, to float64) []record.Reading {
 			}
 		}
 	}
-	slices.SortStableFunc(out, func(a, b record.Reading) int {
-		switch {
-		case a.At < b.At:
-			return -1
-		case a.At > b.At:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(out, func(a, b record.Reading) int { return cmp.Compare(a.At, b.At) })
 	return out
 }

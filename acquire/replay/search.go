@@ -1,6 +1,7 @@
 package replay
 
 import (
+	"cmp"
 	"math"
 	"slices"
 )
@@ -86,15 +87,7 @@ func closest(coarse misfit, trials []trial, step, apart float64) (best, second t
 			dips = append(dips, t)
 		}
 	}
-	slices.SortStableFunc(dips, func(a, b trial) int {
-		switch {
-		case a.share < b.share:
-			return -1
-		case a.share > b.share:
-			return 1
-		}
-		return 0
-	})
+	slices.SortStableFunc(dips, func(a, b trial) int { return cmp.Compare(a.share, b.share) })
 	var looked []trial
 	for _, d := range dips {
 		if len(looked) == rivals {

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"maps"
 	"slices"
 	"strings"
@@ -53,10 +54,10 @@ back to off.`,
 				return job.Usage("--temp 25C", "--temp: %g degC is below the absolute zero", x)
 			}
 			var err error
-			if rq.Table.Map, err = pairs("map", "vg=COLUMN,id=COLUMN", columns); err != nil {
+			if rq.Table.Map, err = pairs("map", "vg=COLUMN,id=COLUMN", columns, aColumn); err != nil {
 				return err
 			}
-			if rq.Table.Units, err = pairs("units", "vg=V,id=mA", units); err != nil {
+			if rq.Table.Units, err = pairs("units", "vg=V,id=mA", units, aColumn); err != nil {
 				return err
 			}
 			if err := checkUnits(rq.Table.Units); err != nil {
@@ -65,10 +66,10 @@ back to off.`,
 			if x, ok := g.RL.Get(); ok && x <= 0 {
 				return job.Usage("--rl 10", "--rl: %g ohm, must be above 0", x)
 			}
-			if rq.MeterLogs, err = rolePairs("meter-logs", "gate=FILE,current=FILE,load=FILE,notes=FILE", logs); err != nil {
+			if rq.MeterLogs, err = pairs("meter-logs", "gate=FILE,current=FILE,load=FILE,notes=FILE", logs, aRole); err != nil {
 				return err
 			}
-			if rq.LogTimes, err = rolePairs("log-times", "current=elapsed", times); err != nil {
+			if rq.LogTimes, err = pairs("log-times", "current=elapsed", times, aRole); err != nil {
 				return err
 			}
 			if err := checkLogs(&rq); err != nil {
@@ -139,8 +140,16 @@ func checkUnits(units map[string]string) error {
 	return nil
 }
 
-// pairs reads name=value words of a flag.
-func pairs(flag, example string, words []string) (map[string]string, error) {
+// aColumn says what is wrong with the name of a column.
+func aColumn(name string) string {
+	if _, number := quantities[name]; number || slices.Contains(texts, name) {
+		return ""
+	}
+	return fmt.Sprintf("nothing is called %q; there are %s and %s", name, strings.Join(slices.Sorted(maps.Keys(quantities)), ", "), strings.Join(texts, ", "))
+}
+
+// pairs reads name=value words of a flag; wrong says what is wrong with a name.
+func pairs(flag, example string, words []string, wrong func(name string) string) (map[string]string, error) {
 	if len(words) == 0 {
 		return nil, nil
 	}
@@ -151,9 +160,8 @@ func pairs(flag, example string, words []string) (map[string]string, error) {
 		if !ok || k == "" || v == "" {
 			return nil, job.Usage("--"+flag+" "+example, "--%s: %q is not of the form NAME=VALUE", flag, w)
 		}
-		if _, number := quantities[k]; !number && !slices.Contains(texts, k) {
-			return nil, job.Usage("--"+flag+" "+example, "--%s: nothing is called %q; there are %s and %s", flag, k,
-				strings.Join(slices.Sorted(maps.Keys(quantities)), ", "), strings.Join(texts, ", "))
+		if why := wrong(k); why != "" {
+			return nil, job.Usage("--"+flag+" "+example, "--%s: %s", flag, why)
 		}
 		if _, twice := out[k]; twice {
 			return nil, job.Usage("--"+flag+" "+example, "--%s: %s is given twice", flag, k)

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"fmt"
 	"slices"
 	"strings"
 	"time"
@@ -12,27 +13,12 @@ import (
 // logRoles are the roles that a log of --meter-logs may have.
 var logRoles = []string{"gate", "current", "load", "drain", "supply", "temperature", "notes"}
 
-// rolePairs reads role=value words of a flag.
-func rolePairs(flag, example string, words []string) (map[string]string, error) {
-	if len(words) == 0 {
-		return nil, nil
+// aRole says what is wrong with the name of a log.
+func aRole(name string) string {
+	if slices.Contains(logRoles, name) {
+		return ""
 	}
-	out := map[string]string{}
-	for _, w := range words {
-		k, v, ok := strings.Cut(w, "=")
-		k, v = strings.ToLower(strings.TrimSpace(k)), strings.TrimSpace(v)
-		if !ok || k == "" || v == "" {
-			return nil, job.Usage("--"+flag+" "+example, "--%s: %q is not of the form ROLE=VALUE", flag, w)
-		}
-		if !slices.Contains(logRoles, k) {
-			return nil, job.Usage("--"+flag+" "+example, "--%s: %q is no role; there are %s", flag, k, strings.Join(logRoles, ", "))
-		}
-		if _, twice := out[k]; twice {
-			return nil, job.Usage("--"+flag+" "+example, "--%s: %s is given twice", flag, k)
-		}
-		out[k] = v
-	}
-	return out, nil
+	return fmt.Sprintf("%q is no role; there are %s", name, strings.Join(logRoles, ", "))
 }
 
 // checkLogs refuses flags of meter logs without them, and the other way round.
