@@ -118,7 +118,7 @@ func (m *measuring) obey(orders []acquire.Order) {
 				m.safe = true // the keeper has switched off by itself
 			}
 		case acquire.Say:
-			if w.keys != nil || !strings.HasPrefix(o.Text, "turn to ") {
+			if w.keys != nil || w.sim == nil || !strings.HasPrefix(o.Text, "turn to ") { // a simulated hand needs not be told
 				w.say("%s: %s", m.device, o.Text)
 			}
 		case acquire.Beep:

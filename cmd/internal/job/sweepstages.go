@@ -44,7 +44,7 @@ func (s *waiting) tick(at float64) {
 		text = append(text, t)
 	}
 	s.err = &Failure{Code: ExitInstrument, Err: fmt.Errorf("nothing comes from: %s", strings.Join(text, ", ")),
-		Hint: s.w.metersVerb() + " shows each line; is the meter on, and sending?"}
+		Hint: s.w.metersVerb() + " shows each line; is the meter on, and sending, or are two lines exchanged?"}
 }
 
 func (s *waiting) missing() (out []string) {
