@@ -148,7 +148,7 @@ func (c *PrefixCheck) claims(p Point, rl float64) PrefixVerdict {
 	for _, x := range prefixes {
 		if would := id * x.factor * rl; x.ratio > 1 && id*x.factor > 1e-5 && math.Abs(would-vl) < 1e-3+0.3*vl {
 			v.Ratio, v.Refuse, v.Factor, v.Key = x.ratio, true, x.factor, x.key
-			v.Text = fmt.Sprintf("the current meter says %s, which would put %s across the load resistor, and there is %s: a prefix is lost; nothing is stored; one key puts the prefix right: %s",
+			v.Text = fmt.Sprintf("the current meter says %s, which would put %s across the load resistor, and there is %s: a prefix is lost; nothing is stored; one key puts it right: %s",
 				show(p.Id, "A"), show(id*rl, "V"), show(vl, "V"), x.key)
 			return v
 		}

@@ -23,6 +23,7 @@ func TestSweepOnATerminal(t *testing.T) {
 		{"read these, then press space", " "},     // of the set-up
 		{"take every device out", " "},            // checks
 		{"read these, then press space", " "},     // of the device
+		{"comes near is oscillation", " "},        // their second page
 		{"insert R1; then press space", " "},      //
 		{"2 points", "u"},                         // once more
 		{"taken back", "f"},                       // what is there is enough
