@@ -34,7 +34,6 @@ type simBench struct {
 	aim     float64                          // V, of the hand; NaN none
 	turning float64                          // V/s
 	rate    func(h acquire.Hand) (v float64) // V/s of the hand
-	orders  []string                         // that the supplies were given
 }
 
 // simLine is the far end of a line for its handler.
