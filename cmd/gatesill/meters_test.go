@@ -46,7 +46,7 @@ func onTerminal(t *testing.T, bin string, answer func(written string) string, ar
 	select {
 	case err := <-done:
 		return <-talked, err
-	case <-time.After(30 * time.Second):
+	case <-time.After(120 * time.Second):
 		cmd.Process.Kill()
 		<-done
 		return <-talked, os.ErrDeadlineExceeded
