@@ -114,6 +114,22 @@ func prefixed(power, most int) (prefix string, decimals int, ok bool) {
 	return "", 0, false
 }
 
+// scaled is the display of at most most counts with its prefix and 0 to 3 decimals.
+func (s Shown) scaled(most int) (n int, minus bool, prefix string, decimals int, err error) {
+	power, err := s.power()
+	if err != nil {
+		return 0, false, "", 0, err
+	}
+	if n, minus, err = s.counts(most); err != nil {
+		return 0, false, "", 0, err
+	}
+	prefix, decimals, ok := prefixed(power, 3)
+	if !ok {
+		return 0, false, "", 0, unsayable("one count of %g %s", s.Digit, s.Unit)
+	}
+	return n, minus, prefix, decimals, nil
+}
+
 // figure writes counts with their point: 3012 with 3 decimals is 3.012.
 func figure(n int, minus bool, decimals int) string {
 	t := fmt.Sprintf("%0*d", decimals+1, n)
@@ -127,17 +143,9 @@ func figure(n int, minus bool, decimals int) string {
 }
 
 func encodePolled(s Shown) ([]byte, error) {
-	power, err := s.power()
+	n, minus, prefix, decimals, err := s.scaled(3999)
 	if err != nil {
 		return nil, err
-	}
-	n, minus, err := s.counts(3999)
-	if err != nil {
-		return nil, err
-	}
-	prefix, decimals, ok := prefixed(power, 3)
-	if !ok {
-		return nil, unsayable("one count of %g %s", s.Digit, s.Unit)
 	}
 	function, unit := "DC", s.Unit
 	switch {

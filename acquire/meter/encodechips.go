@@ -15,17 +15,9 @@ var segments = map[byte]string{'0': "ABCDEF", '1': "BC", '2': "ABDEG", '3': "ABC
 var segmentPlace = map[rune][2]int{'A': {0, 0}, 'F': {0, 1}, 'E': {0, 2}, 'B': {1, 0}, 'G': {1, 1}, 'C': {1, 2}, 'D': {1, 3}}
 
 func encodeSegments(s Shown) ([]byte, error) {
-	power, err := s.power()
+	n, minus, prefix, decimals, err := s.scaled(9999)
 	if err != nil {
 		return nil, err
-	}
-	n, minus, err := s.counts(9999)
-	if err != nil {
-		return nil, err
-	}
-	prefix, decimals, ok := prefixed(power, 3)
-	if !ok {
-		return nil, unsayable("one count of %g %s", s.Digit, s.Unit)
 	}
 	var nibble [14]byte
 	light := func(set bool, number, bit int) {
@@ -90,17 +82,9 @@ func encodeSegments(s Shown) ([]byte, error) {
 }
 
 func encodeStatus(s Shown) ([]byte, error) {
-	power, err := s.power()
+	n, minus, prefix, decimals, err := s.scaled(9999)
 	if err != nil {
 		return nil, err
-	}
-	n, minus, err := s.counts(9999)
-	if err != nil {
-		return nil, err
-	}
-	prefix, decimals, ok := prefixed(power, 3)
-	if !ok {
-		return nil, unsayable("one count of %g %s", s.Digit, s.Unit)
 	}
 	sign, display := '+', fmt.Sprintf("%04d", n)
 	if minus {

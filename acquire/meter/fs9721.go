@@ -21,6 +21,17 @@ func fs9721Could(b []byte) bool {
 var glyphs = [128]byte{0x7D: '0', 0x05: '1', 0x5B: '2', 0x1F: '3', 0x27: '4', 0x3E: '5', 0x7E: '6',
 	0x15: '7', 0x7F: '8', 0x3F: '9', 0x68: 'L', 0x00: ' '}
 
+// oneScale refuses a frame f that shows more than one prefix, or not one unit.
+func oneScale(f []byte, prefixes, units int) error {
+	switch {
+	case prefixes > 1:
+		return bad("% X: %d prefixes", f, prefixes)
+	case units != 1:
+		return bad("% X: %d units", f, units)
+	}
+	return nil
+}
+
 func fs9721Read(f []byte) (Reading, error) {
 	b := func(k int, bit byte) bool { return f[k-1]>>bit&1 == 1 } // byte from 1, bit from 0
 	r := Reading{Column: 1, AC: b(1, 3), DC: b(1, 2), Auto: b(1, 1), Relative: b(12, 1), Hold: b(12, 0), LowBatt: b(13, 0)}
@@ -62,11 +73,8 @@ func fs9721Read(f []byte) (Reading, error) {
 	if n == 0 && f[13]&15 != 0 {
 		unit, n = "degC", 1 // common practice of meters with this chip, no source
 	}
-	switch {
-	case prefixes > 1:
-		return r, bad("% X: %d prefixes", f, prefixes)
-	case n != 1:
-		return r, bad("% X: %d units", f, n)
+	if err := oneScale(f, prefixes, n); err != nil {
+		return r, err
 	}
 	r.Unit = unit
 	switch {

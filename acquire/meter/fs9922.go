@@ -40,11 +40,8 @@ func fs9922Read(f []byte) (Reading, error) {
 	exp, prefixes := ones([]flag[int]{{b(8, 1), -9}, {b(9, 7), -6}, {b(9, 6), -3}, {b(9, 5), 3}, {b(9, 4), 6}})
 	unit, n := ones([]flag[string]{{b(10, 7), "V"}, {b(10, 6), "A"}, {b(10, 5), "ohm"}, {b(10, 4), "hFE"}, {b(10, 3), "Hz"},
 		{b(10, 2), "F"}, {b(10, 1), "degC"}, {b(10, 0), "degF"}, {b(9, 1), "%"}})
-	switch {
-	case prefixes > 1:
-		return r, bad("% X: %d prefixes", f, prefixes)
-	case n != 1:
-		return r, bad("% X: %d units", f, n)
+	if err := oneScale(f, prefixes, n); err != nil {
+		return r, err
 	}
 	r.Unit = unit
 	switch {

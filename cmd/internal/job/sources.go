@@ -58,9 +58,9 @@ func columnUnits(b *bench.Bench, path string) string {
 	return strings.Join(units, ",")
 }
 
-// Timings are what the bench file says of when its meters measure, by role. A meter
-// of which it says nothing has the zero [acquire.Timing], but for how long a USB
-// adapter holds bytes back: that is taken for the worst that is usual.
+// Timings are what the bench file says of when its meters measure, by role. What it
+// does not say is zero, but for LagU, then NaN ([acquire.Timing] takes one cycle), and
+// for how long a USB adapter holds bytes back: the worst that is usual.
 func Timings(b *bench.Bench) map[string]acquire.Timing {
 	out := map[string]acquire.Timing{}
 	for i, in := range b.Meters {

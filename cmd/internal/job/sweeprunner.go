@@ -226,13 +226,20 @@ func (m *measuring) show(at float64) screen.Model {
 		s.Notices = append(s.Notices, screen.Notice{Stop: true, Text: v.Paused})
 	}
 	for _, p := range v.Points {
-		i := p.Id
-		if math.IsNaN(i) {
-			i = p.Vl / m.w.given.RL.Float()
-		}
-		if !math.IsNaN(i) {
-			s.Plot.Points = append(s.Plot.Points, screen.XY{X: p.Vg, Y: i, Open: !p.Settled})
+		if xy, ok := plotted(p, m.w.given.RL.Float()); ok {
+			xy.Open = !p.Settled
+			s.Plot.Points = append(s.Plot.Points, xy)
 		}
 	}
 	return s
+}
+
+// plotted is where a point stands in the plot: its drain current is the measured one,
+// else that through the load resistor of rl ohms. Not ok: it has neither.
+func plotted(p acquire.Point, rl float64) (at screen.XY, ok bool) {
+	i := p.Id
+	if math.IsNaN(i) {
+		i = p.Vl / rl
+	}
+	return screen.XY{X: p.Vg, Y: i}, !math.IsNaN(i)
 }

@@ -298,12 +298,8 @@ func (t *typist) show(float64) screen.Model {
 		m.Notices = append(m.Notices, screen.Notice{Stop: s.Level() == acquire.Over, Text: s.String()})
 	}
 	for _, p := range t.points {
-		i := p.Id
-		if math.IsNaN(i) {
-			i = p.Vl / t.w.given.RL.Float()
-		}
-		if !math.IsNaN(i) {
-			m.Plot.Points = append(m.Plot.Points, screen.XY{X: p.Vg, Y: i})
+		if xy, ok := plotted(p, t.w.given.RL.Float()); ok {
+			m.Plot.Points = append(m.Plot.Points, xy)
 		}
 	}
 	return m
