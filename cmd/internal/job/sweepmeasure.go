@@ -320,7 +320,7 @@ func (w *sweeper) measure(ctx context.Context, device string) (again bool, err e
 			d.Settled++
 		}
 	}
-	d.Result = w.result(ctx, device, &sw)
+	d.Result = w.result(device, &sw)
 	w.doc.Devices = append(w.doc.Devices, d)
 	w.tellResult(d)
 	if m.trouble && w.trouble == nil {
@@ -369,7 +369,7 @@ func (w *sweeper) askAgain(ctx context.Context, m *measuring) (again bool, err e
 
 // result reads the sweep's thresholds, as a first look: the lot is not yet
 // considered.
-func (w *sweeper) result(ctx context.Context, device string, sw *record.Sweep) fit.Result {
+func (w *sweeper) result(device string, sw *record.Sweep) fit.Result {
 	if sw.Len() == 0 {
 		r := fit.NewResult()
 		r.State, r.Why = fit.Declined, "no point was taken"

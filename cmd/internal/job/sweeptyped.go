@@ -108,7 +108,7 @@ func (w *sweeper) typedDevice(ctx context.Context, device string) error {
 		return err
 	}
 	d := report.SweptDevice{Device: device, Sweep: id, Points: len(t.points), Settled: len(t.points), Complete: why == "", Why: first(why, "typed")}
-	d.Result = w.result(ctx, device, &sw)
+	d.Result = w.result(device, &sw)
 	w.doc.Devices = append(w.doc.Devices, d)
 	w.tellResult(d)
 	if t.quit {
