@@ -262,7 +262,9 @@ func judge(s *report.Sheet, opt lot.SpreadOptions) {
 func lotDevices(s *report.Sheet) []lot.Device {
 	out := make([]lot.Device, len(s.Devices))
 	for i, d := range s.Devices {
-		out[i] = lot.Device{Name: d.Name, Control: d.Role == record.Control, Result: d.Result}
+		out[i] = lot.Device{
+			Name: d.Name, Control: d.Role == record.Control, DateCode: d.DateCode, Tube: d.Tube, Result: d.Result,
+		}
 	}
 	return out
 }
