@@ -1,7 +1,6 @@
 package lot
 
 import (
-	"fmt"
 	"math"
 
 	"gatesill/fit"
@@ -106,9 +105,8 @@ func SpecOf(devs []Device, o SpecOptions) *Specification {
 	if o.PChannel {
 		s.Low, s.High = -most, -least
 	}
-	var x []float64
-	of := sample{}
-	unlike := map[string]int{}
+	var of sample
+	var why []string
 	for i := range devs {
 		d := &devs[i]
 		j := o.judge(d, least, most)
@@ -116,20 +114,18 @@ func SpecOf(devs []Device, o SpecOptions) *Specification {
 		if d.Control || d.Result.State == fit.Excluded {
 			continue
 		}
-		if d.Unlike != "" {
-			unlike[d.Unlike]++
-		}
 		if j.Decision != Undecided {
 			s.Count[j.Decision]++
 		} else {
 			s.Undecided++
+			why = append(why, j.Why)
 		}
 		if j.Decision == Fail && o.SendBack {
 			s.Broken = append(s.Broken, j.Name)
 		}
 		switch v := d.Result.Vgsth.Value; {
 		case d.Unlike == "" && isFinite(v):
-			x = append(x, o.sign()*v)
+			of.x = append(of.x, o.sign()*v)
 		case d.Unlike == "":
 			of.without++
 			if j.Decision == Fail {
@@ -138,9 +134,8 @@ func SpecOf(devs []Device, o SpecOptions) *Specification {
 		}
 	}
 	if len(s.Count) == 0 {
-		s.Why = reasonOfAll(s.Devices, unlike)
+		s.Why = reasonOfAll(why)
 	}
-	of.x = x
 	s.Ppk = capabilityOf(&of, least, most, o.Populations)
 	s.Band = bandOfLot(&of, o.Populations)
 	if o.PChannel {
@@ -199,7 +194,10 @@ func (o *SpecOptions) judge(d *Device, least, most float64) Judgement {
 	if !isFinite(x) {
 		if d.Result.State != fit.Above || !(d.Reached > most) {
 			j.Why = "has no V_GS(th)"
-			if d.Result.State == fit.Above {
+			switch {
+			case d.Result.State == fit.Above && math.IsNaN(most):
+				j.Why = "never reaches the test current"
+			case d.Result.State == fit.Above:
 				j.Why = "never reaches the test current, and its sweep ends before the upper limit"
 			}
 			return j
@@ -263,20 +261,14 @@ func conformance(x, u, least, most float64) float64 {
 	return max(0, p)
 }
 
-// reasonOfAll says why nothing can be judged: the reason of most devices.
-func reasonOfAll(js []Judgement, unlike map[string]int) string {
-	best, n := "", 0
-	count := map[string]int{}
-	for _, j := range js { // in order, so that the first of equals wins
-		if count[j.Why]++; count[j.Why] > n && (unlike[j.Why] > 0 || len(unlike) == 0) {
-			best, n = j.Why, count[j.Why]
+// reasonOfAll says why nothing can be judged: the reason of most of the devices that
+// count, the first of equals.
+func reasonOfAll(why []string) string {
+	best, n, count := "the lot has no device", 0, map[string]int{}
+	for _, w := range why {
+		if count[w]++; count[w] > n {
+			best, n = w, count[w]
 		}
-	}
-	if best == "" {
-		return "no device can be judged"
-	}
-	if len(unlike) == 0 {
-		return fmt.Sprintf("no device can be judged: %d of %d: %s", n, len(js), best)
 	}
 	return best
 }

@@ -51,10 +51,10 @@ func CurveKey(current float64) fit.Key {
 // Device is one device of the lot with the result of its fit.
 type Device struct {
 	Name     string
-	Control  bool   // kept for checking the bench: in no statistic
-	DateCode string // written on it; "": not known
-	Tube     string // tube, tray or reel it came in; "": not known
-	Unlike   string // why its V_GS(th) cannot be held against the data sheet: not measured at its condition; "": it can
+	Control  bool    // kept for checking the bench: in no statistic
+	DateCode string  // written on it; "": not known
+	Tube     string  // tube, tray or reel it came in; "": not known
+	Unlike   string  // why its V_GS(th) cannot be held against the data sheet: not measured at its condition; "": it can
 	Reached  float64 // V, greatest gate voltage that it was given, by magnitude and with the sign that turns it on; 0: not known
 	Result   fit.Result
 }
