@@ -48,9 +48,13 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "  ", Clean(Sentence(sp.Text)), style.Width)
 		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
 		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
+		for _, o := range sp.Origins {
+			wrapped(p, "  by "+o.Of+": ", "    ", Clean(OriginWords(o)), style.Width)
+		}
 	}
 	lotWarnings(p, s, warnings, style)
 	flags(p, s, style)
+	specBlock(p, s, style)
 	doubts(p, s, style)
 	notMeasured(p, s, style)
 	return p.err
@@ -209,4 +213,30 @@ func flags(p *printer, s Sheet, style Style) {
 			p.line("  %s", style.paint(name, red))
 		}
 	}
+}
+
+// OriginWords tells how the groups of a split lie to date codes or tubes: the
+// sentence where they follow them, else the counts.
+func OriginWords(o lot.Origin) string {
+	if o.Follows {
+		return Sentence(o.Text)
+	}
+	const most = 6
+	var parts []string
+	for i, g := range o.Groups {
+		if i == most {
+			parts = append(parts, fmt.Sprintf("and %d more", len(o.Groups)-most))
+			break
+		}
+		name := g.Name
+		if name == "" {
+			name = NotGiven
+		}
+		parts = append(parts, fmt.Sprintf("%s: %d lower, %d upper", name, g.Low, g.High))
+	}
+	text := strings.Join(parts, "; ")
+	if isNumber(o.P) {
+		return text + fmt.Sprintf(" (by chance so good an agreement has p = %.2g)", o.P)
+	}
+	return text
 }

@@ -82,6 +82,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 		return s, storeFailure(err)
 	}
 	judge(&s, lot.SpreadOptions{K: o.Limit, Known: known})
+	specify(&s)
 	s.Hash = dataHash(&s)
 	if !o.ReadOnly {
 		err := db.Update(ctx, func(tx *store.Tx) error { return tx.PutEstimates(estimates(&s, o.Method, digits)) })
@@ -252,7 +253,9 @@ func sortedBy(s *report.Sheet) fit.Key {
 func judge(s *report.Sheet, opt lot.SpreadOptions) {
 	opt.SortedBy, opt.TestCurrent = s.SortedBy, s.TestCurrent
 	opt.PChannel = s.Part.Channel == record.PChannel
-	opt.VgsthMin, opt.VgsthMax = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	if sheetCurrent(s) { // at another current they say nothing
+		opt.VgsthMin, opt.VgsthMax = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	}
 	s.Spread = lot.SpreadOf(lotDevices(s), opt)
 	if w, ok := unlike(s); ok {
 		s.Spread.Warnings = append([]fit.Warning{w}, s.Spread.Warnings...)
@@ -263,7 +266,7 @@ func lotDevices(s *report.Sheet) []lot.Device {
 	out := make([]lot.Device, len(s.Devices))
 	for i, d := range s.Devices {
 		out[i] = lot.Device{
-			Name: d.Name, Control: d.Role == record.Control, DateCode: d.DateCode, Tube: d.Tube, Result: d.Result,
+			Name: d.Name, Control: d.Role == record.Control, DateCode: d.DateCode, Tube: d.Tube, Unlike: unlikeSheet(s, &s.Devices[i]), Reached: reached(s, &s.Devices[i]), Result: d.Result,
 		}
 	}
 	return out
