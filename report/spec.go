@@ -145,12 +145,16 @@ func (s *Sheet) judged(d lot.Decision) []string {
 		}
 		var notes []string
 		if q := s.Devices[i].Result.Vgsth; q.Ok() {
-			notes = append(notes, FormatPlain(q.Value, q.U, "V"))
+			u := q.UAbsolute
+			if !isNumber(u) {
+				u = q.U
+			}
+			notes = append(notes, FormatPlain(q.Value, u, "V"))
 		} else {
 			notes = append(notes, "above")
 		}
 		if isNumber(j.Conform) {
-			notes = append(notes, "conforms with "+ConformWords(j.Conform))
+			notes = append(notes, ConformWords(j.Conform)+" likely to conform")
 		}
 		out = append(out, fmt.Sprintf("%s (%s)", j.Name, strings.Join(notes, ", ")))
 	}
@@ -193,7 +197,7 @@ func aside(d *Device) bool { return d.Role == record.Control || d.State() == fit
 // uncertaintyLine tells what a value is uncertain by against the limits, and what two
 // devices differ by against each other.
 func (s *Sheet) uncertaintyLine() string {
-	var absolute, within []float64
+	var absolute, between, within []float64
 	for i := range s.Devices {
 		q := s.Devices[i].Result.Vgsth
 		if aside(&s.Devices[i]) || !q.Ok() {
@@ -201,6 +205,9 @@ func (s *Sheet) uncertaintyLine() string {
 		}
 		if isNumber(q.UAbsolute) {
 			absolute = append(absolute, q.UAbsolute)
+		}
+		if isNumber(q.UBetween) {
+			between = append(between, q.UBetween)
 		}
 		if isNumber(q.U) {
 			within = append(within, q.U)
@@ -211,7 +218,10 @@ func (s *Sheet) uncertaintyLine() string {
 	}
 	text := fmt.Sprintf("± %s absolute", FormatTwoDigits(2*middle(absolute), "V"))
 	if len(within) > 0 {
-		text += fmt.Sprintf("; ± %s of a difference between two devices on the same meters at one temperature", FormatTwoDigits(2*math.Sqrt2*middle(within), "V"))
+		text += fmt.Sprintf("; of a difference between two devices on the same meters ± %s at one temperature", FormatTwoDigits(2*math.Sqrt2*middle(within), "V"))
+		if len(between) > 0 {
+			text += fmt.Sprintf(", ± %s from one session to another", FormatTwoDigits(2*math.Sqrt2*middle(between), "V"))
+		}
 	}
 	return text + " (k = 2, medians)"
 }
@@ -221,7 +231,7 @@ func (s *Sheet) partsFields() []Field {
 	sp := s.Spec
 	percent := func(x float64) string { return strconv.FormatFloat(100*x, 'g', 2, 64) + " %" }
 	var out []Field
-	ppk := "declined: " + sp.Ppk.Declined
+	ppk := "declined, because " + sp.Ppk.Declined
 	if sp.Ppk.Declined == "" {
 		ppk = fmt.Sprintf("at least %.2f (%s confidence; %.2f in these %d devices)", sp.Ppk.Lower, percent(sp.Ppk.Level), sp.Ppk.Value, sp.Ppk.N)
 	}
@@ -230,7 +240,7 @@ func (s *Sheet) partsFields() []Field {
 	}
 	out = append(out, Field{"Ppk", Clean(ppk)})
 	b := &sp.Band
-	band := "declined: " + b.Declined
+	band := "declined, because " + b.Declined
 	if b.Declined == "" {
 		u := SummaryDigits(s.Spread.Summary[fit.KeyVgsth])
 		sc := ScaleOf("V", b.Low, b.High)

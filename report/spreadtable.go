@@ -25,6 +25,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	keys := spreadKeys(s.Spread)
 	if len(keys) == 0 {
 		p.line("No device of the lot has a value: there is no spread to show.")
+		specBlock(p, s, style)
 		notMeasured(p, s, style)
 		lotWarnings(p, s, s.Spread.Warnings, style)
 		return p.err
@@ -215,12 +216,9 @@ func flags(p *printer, s Sheet, style Style) {
 	}
 }
 
-// OriginWords tells how the groups of a split lie to date codes or tubes: the
-// sentence where they follow them, else the counts.
+// OriginWords tells how the groups of a split lie to date codes or tubes, and whether
+// they follow them.
 func OriginWords(o lot.Origin) string {
-	if o.Follows {
-		return Sentence(o.Text)
-	}
 	const most = 6
 	var parts []string
 	for i, g := range o.Groups {
@@ -232,11 +230,14 @@ func OriginWords(o lot.Origin) string {
 		if name == "" {
 			name = NotGiven
 		}
-		parts = append(parts, fmt.Sprintf("%s: %d lower, %d upper", name, g.Low, g.High))
+		parts = append(parts, fmt.Sprintf("%s has %d lower, %d upper", name, g.Low, g.High))
 	}
 	text := strings.Join(parts, "; ")
-	if isNumber(o.P) {
-		return text + fmt.Sprintf(" (by chance so good an agreement has p = %.2g)", o.P)
+	switch {
+	case o.Follows:
+		return text + fmt.Sprintf(": the groups follow the %s (p = %.2g for so good an agreement by chance)", o.Of, o.P)
+	case isNumber(o.P):
+		return text + fmt.Sprintf(": not shown to go with the groups (p = %.2g)", o.P)
 	}
 	return text
 }

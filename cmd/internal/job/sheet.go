@@ -100,6 +100,9 @@ func load(tx *store.Tx, name string) (s report.Sheet, sweeps []record.Sweep, err
 	if s.Lot, s.Part, err = lotOf(tx, name); err != nil {
 		return s, nil, err
 	}
+	if err = rulesSetAt(tx, &s); err != nil {
+		return s, nil, err
+	}
 	if s.Sources, err = tx.Sources(s.Lot.ID); err != nil {
 		return s, nil, err
 	}

@@ -3,10 +3,12 @@ package job
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"gatesill/fit"
 	"gatesill/fit/lot"
 	"gatesill/report"
+	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -17,15 +19,15 @@ func specify(s *report.Sheet) {
 	s.Spec = lot.SpecOf(lotDevices(s), lot.SpecOptions{
 		Min: s.Part.VgsthMin.Float(), Max: s.Part.VgsthMax.Float(),
 		PChannel: s.Part.Channel == record.PChannel, Depletion: s.Part.Mode == record.Depletion,
-		Guard: lot.Guard(l.Guard), GuardSet: ruleSet(s, l.Guard.Unit != ""),
-		SendBack: l.SendBack == "outside-limits", SendBackSet: ruleSet(s, l.SendBack != ""),
+		Guard: lot.Guard(l.Guard), GuardSet: ruleSet(s, l.Guard.Unit != "", s.GuardSetAt),
+		SendBack: l.SendBack == "outside-limits", SendBackSet: ruleSet(s, l.SendBack != "", s.SendBackSetAt),
 		Populations: s.Spread.Populations,
 	})
 }
 
 // ruleSet tells whether a rule of the lot was set before its first reading: by the
 // time of that, and where a file did not tell it by the time of its import.
-func ruleSet(s *report.Sheet, given bool) string {
+func ruleSet(s *report.Sheet, given bool, at string) string {
 	if !given {
 		return lot.RuleNone
 	}
@@ -42,12 +44,33 @@ func ruleSet(s *report.Sheet, given bool) string {
 			}
 		}
 	}
-	// Stamps of one form compare as texts; of a day alone its whole is after nothing
-	// that was set on it.
-	if l := &s.Lot; l.DecidedAt != "" && (begun == "" || l.DecidedAt < begun) {
+	// Stamps compare as texts, and a day alone comes before every time on it: a rule
+	// set on the day of the first reading is not known to be older.
+	if at != "" && (begun == "" || at < begun) {
 		return lot.RuleBefore
 	}
 	return lot.RuleAfter
+}
+
+// rulesSetAt finds in the audit trail when the two rules of a lot were set last; the
+// lot itself has one time for both.
+func rulesSetAt(tx *store.Tx, s *report.Sheet) error {
+	trail, err := tx.Changes("lot", s.Lot.ID)
+	if err != nil {
+		return err
+	}
+	s.GuardSetAt, s.SendBackSetAt = s.Lot.DecidedAt, s.Lot.DecidedAt
+	for _, rule := range []struct {
+		at     *string
+		fields []string
+	}{{&s.GuardSetAt, []string{"guard", "guard_unit"}}, {&s.SendBackSetAt, []string{"send_back"}}} {
+		for _, c := range trail {
+			if c.Field == "created" || slices.Contains(rule.fields, c.Field) {
+				*rule.at = c.At
+			}
+		}
+	}
+	return nil
 }
 
 // Voltages and currents count as those of the data sheet within these shares of
