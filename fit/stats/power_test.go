@@ -125,7 +125,7 @@ func TestWelchPower(t *testing.T) {
 	}
 	c = criticalBetween(0.005, 1, 2)
 	relative(t, "critical value 1.1", c(1.1), UpperT(0.005, 1.1), 1e-9)
-	began = time.Now()
+	began := time.Now()
 	n := WelchEquivalenceSize(5, -50, 50, 80, 80, 0.05, 0.8)
 	t.Log(n, time.Since(began))
 	if n < 47 || n > 48 {
