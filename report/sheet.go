@@ -7,6 +7,7 @@ package report
 
 import (
 	"gatesill/fit"
+	"gatesill/fit/compare"
 	"gatesill/fit/lot"
 	"gatesill/store/record"
 )
@@ -28,13 +29,20 @@ type Sheet struct {
 	Shape  *fit.LotShape // of the lot's curves, which devices with too few points were read along; nil: none
 	Budget bool          // the results hold how their uncertainties come about, and that is shown
 
-	Spread  lot.Spread
-	Sorting *lot.Sorting // nil: not sorted
-	Version string       // of the program
-	Hash    string       // SHA-256 over the canonical data, hex
-	Latest  string       // latest time stamp in the data: the page has no present time
+	Spread   lot.Spread
+	Sorting  *lot.Sorting // nil: not sorted
+	Compared *Compared    // nil: not compared with another lot
+	Version  string       // of the program
+	Hash     string       // SHA-256 over the canonical data, hex
+	Latest   string       // latest time stamp in the data: the page has no present time
 
 	Codes []fit.CodeInfo // explains the warning codes; nil: they are shown without advice
+}
+
+// Compared is the lot of a sheet, as the candidate, against a reference lot.
+type Compared struct {
+	Reference *Sheet
+	compare.Comparison
 }
 
 // Verdicts gives the verdict of the spread on each device, by name.

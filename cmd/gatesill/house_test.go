@@ -21,12 +21,14 @@ var mayImport = map[string][]string{
 	"fit/stats":         {},
 	"fit/lot":           {"fit", "fit/stats"},
 	"fit/match":         {"fit", "fit/stats"},
-	"report":            {"store/record", "fit", "fit/lot", "fit/match"},
-	"report/screen":     {"store/record", "report"},                                // the terminal view of a live bench
-	"report/internal":   {"store/record", "fit", "fit/lot", "fit/match", "report"}, // invented sheets for tests
-	"report/svg":        {"store/record", "fit", "fit/lot", "fit/match", "report", "report/internal/"},
-	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
-	"report/live":       {"store/record", "fit", "fit/lot", "fit/match", "report", "report/svg", "report/internal/"},
+	"fit/compare":       {"fit", "fit/stats", "fit/lot"},
+	"fit/gauge":         {"fit", "fit/stats"},
+	"report":            {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge"},
+	"report/screen":     {"store/record", "report"},                                                            // the terminal view of a live bench
+	"report/internal":   {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "report"}, // invented sheets for tests
+	"report/svg":        {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "report", "report/internal/"},
+	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "report", "report/svg", "report/internal/"},
+	"report/live":       {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "report", "report/svg", "report/internal/"},
 	"cmd/internal/job":  {"store", "acquire", "acquire/", "fit", "fit/", "report", "report/", "store/record"},
 	"cmd/gatesill":      {"cmd/internal/job", "store/record", "acquire", "acquire/table", "acquire/keeper", "acquire/rehearsal", "report"},
 }
