@@ -153,8 +153,15 @@ func studentized(q float64, k int, df float64, upper bool) float64 {
 	case math.IsInf(df, 1):
 		return normalRange(q, k, upper)
 	}
-	h := min(scaleStep, scaleNarrow/math.Sqrt(df+float64(k)))
-	density := func(u float64) float64 { return math.Exp(df * (u - math.Expm1(2*u)/2)) }
+	return min(1, overScale(df, float64(k), func(s float64) float64 { return normalRange(q*s, k, upper) }))
+}
+
+// overScale is the mean of f(s) >= 0 where s is a sample standard deviation with df
+// degrees of freedom of normal values with standard deviation 1. f rises no faster
+// than s^k and falls no faster than a normal tail. Sums of positive terms: the result
+// has its digits however small it is.
+func overScale(df, k float64, f func(s float64) float64) float64 {
+	h := min(scaleStep, scaleNarrow/math.Sqrt(df+k))
 	var sum, all float64
 	for _, way := range []float64{1, -1} {
 		last := 0.0
@@ -163,21 +170,21 @@ func studentized(q float64, k int, df float64, upper bool) float64 {
 				continue
 			}
 			u := way * h * float64(i)
-			g := density(u)
+			g := math.Exp(df * (u - math.Expm1(2*u)/2))
 			if g == 0 {
 				break
 			}
-			term := g * normalRange(q*math.Exp(u), k, upper)
+			term := g * f(math.Exp(u))
 			sum += term
 			all += g
-			// Far out in a tail the terms grow before they fall.
-			if g < negligible*all && term <= last && term <= negligible*sum {
+			// Far out in a tail the terms grow before they fall, from 0 even.
+			if sum > 0 && g < negligible*all && term <= last && term <= negligible*sum {
 				break
 			}
 			last = term
 		}
 	}
-	return min(1, sum/all)
+	return sum / all
 }
 
 // normalRange is the probability that the range of k standard normal values lies
