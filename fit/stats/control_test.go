@@ -42,9 +42,12 @@ func TestChartConstants(t *testing.T) {
 	near(t, "d2 of 3", three.MeanRange, 3/math.Sqrt(math.Pi), 1e-14)
 	near(t, "d3 of 3", three.SDRange, math.Sqrt(2+3*math.Sqrt(3)/math.Pi-9/math.Pi), 1e-11)
 	near(t, "D4 and B4 of 2", two.D4, two.B4, 1e-11)
-	// The series of c4 goes on where the gamma function ends.
-	a, b, c := meanSD(999), meanSD(1000), meanSD(1001)
-	near(t, "c4 across the change", c-b, (b-a)*(998.0/1000)*(999.0/1000), 1e-11)
+	// Of two sizes that follow each other c4 c4' = √((n-1)/n): also across the change
+	// from the gamma function to the series.
+	for n := 2.0; n < 1e6; n = math.Ceil(n * 1.01) {
+		near(t, "c4 of two sizes", meanSD(n)*meanSD(n+1), math.Sqrt((n-1)/n), 2e-12)
+	}
+	near(t, "c4 across the change", meanSD(1000)*meanSD(1001), math.Sqrt(0.999), 2e-12)
 	if k := ChartConstantsOf(1); !math.IsNaN(k.MeanRange) || !math.IsNaN(k.A3) || !math.IsNaN(k.D3) || !math.IsNaN(k.B4) {
 		t.Errorf("subgroups of one: %+v, want NaN", k)
 	}
@@ -88,13 +91,13 @@ func TestPistonRings(t *testing.T) {
 	p := load(t, "control_chart_xbar_r_s_pistonrings")
 	g := groups(t, p.Data["groups"])[:int(number(t, p.Data["n_phase1"]))]
 	r, s := RangeChart(g), SDChart(g)
-	// The source has d2 of 5 as 2.326.
+	// The source has d2 of 5 as 2.326, and the full figure of r_ucl d3 as 0.8641.
 	sigma := r.Spread.Center / 2.326
 	half := 3 * sigma / math.Sqrt(5)
 	agree(t, p, map[string]float64{
 		"center": r.Level.Center, "rbar": r.Spread.Center, "sigma_r": sigma,
 		"xbar_lcl": r.Level.Center - half, "xbar_ucl": r.Level.Center + half,
-		"r_lcl": r.Spread.Low, "r_ucl": r.Spread.Center + 3*ChartConstantsOf(5).SDRange*sigma,
+		"r_lcl": r.Spread.Low, "r_ucl": r.Spread.Center + 3*0.8641*sigma,
 		"sbar": s.Spread.Center, "sigma_s": s.Sigma, "s_lcl": s.Spread.Low, "s_ucl": s.Spread.High,
 		"sigma_r_exact_d2": r.Sigma, "r_ucl_exact": r.Spread.High,
 	}, 1e-11)

@@ -12,11 +12,13 @@ var ErrGaugeStudy = errors.New("no gauge study")
 
 // Component is one part of the variation in a gauge study.
 type Component struct {
-	Variance  float64 // unit of the readings squared; 0 where the estimate fell below that
-	Estimate  float64 // the same before: below 0 where the component is lost in the scatter of the others
-	Negative  bool    // Estimate is below 0
-	SD        float64 // root of Variance
-	Low, High float64 // interval of SD, by the modified large sample method unless said otherwise
+	// Variance, in the unit of the readings squared, is never below 0, and that of a
+	// component made of others is their sum. Estimate is what the mean squares give:
+	// below 0, and then Negative, where the component is lost in the scatter.
+	Variance, Estimate float64
+	Negative           bool
+	SD                 float64 // root of Variance
+	Low, High          float64 // interval of SD, by the modified large sample method unless said otherwise
 	// Shares of the total, in percent. Those of the variance add up to 100, those of
 	// the standard deviation do not.
 	PercentVariance, PercentSD float64

@@ -217,12 +217,15 @@ func inversions(n int) []float64 {
 	p[0] = 1
 	next := make([]float64, len(p))
 	for m := 2; m <= n; m++ {
-		// The m-th value jumps over 0 to m-1 others, each as likely.
+		// The m-th value jumps over 0 to m-1 others, each as likely. Below the middle the
+		// shares grow, so that the running sum keeps its digits.
+		sum := 0.0
 		for d := range p {
-			next[d] = 0
-			for over := 0; over < m && over <= d; over++ {
-				next[d] += p[d-over] / float64(m)
+			sum += p[d]
+			if d >= m {
+				sum -= p[d-m]
 			}
+			next[d] = max(0, sum) / float64(m)
 		}
 		p, next = next, p
 	}

@@ -22,19 +22,19 @@ import "math"
 
 const (
 	// rangeStep times 1/√k is the step of z. The narrowest integrand there is behaves
-	// as exp(-k z²/2), for which equal steps h err by 2 exp(-2π²/(k h²)): 1e-20.
-	rangeStep = 0.65
-	// rangeReach is how far from its middle an integrand in z is followed: exp(-9²/2)
-	// is 3e-18, and most fall faster.
-	rangeReach = 9
-	// scaleStep bounds the step of u: exp(-exp(2u)) is analytic within |Im u| < π/4,
-	// so that equal steps h err by exp(-π²/(2h)) = 1e-18.
-	scaleStep = 0.12
-	// scaleNarrow times 1/√(df+k) is the step of u where it is narrower than that: the
-	// integrand behaves as exp(-(df+k) u²), equal steps err by exp(-π²/((df+k) h²)).
-	scaleNarrow = 0.45
+	// as exp(-k z²/2), for which equal steps h err by 2 exp(-2π²/(k h²)): 6e-18.
+	rangeStep = 0.7
+	// rangeReach is how far from its middle an integrand in z is followed: exp(-8.5²/2)
+	// is 2e-16, and most fall faster.
+	rangeReach = 8.5
+	// scaleStep, and for many degrees of freedom scaleNarrow times 1/√(df+k), are the
+	// step h of u. At u + iv the density is larger than at u by up to cos(2v)^(-df/2), so
+	// that equal steps err by the least over v of that times exp(-2πv/h): below 1e-13
+	// for every df.
+	scaleStep   = 0.1
+	scaleNarrow = 0.4
 	// negligible is the share of a sum below which a term ends it.
-	negligible = 1e-18
+	negligible = 1e-17
 )
 
 // StudentizedRangeUpper is the probability that the studentised range of k values
