@@ -167,26 +167,14 @@ func TestStudentizedRangeProperties(t *testing.T) {
 	}
 }
 
-// Student's t against scipy 1.10.1, scipy.stats.t.sf, where one form has lost its
-// digits: t² below df, and many degrees of freedom.
-func TestTUpperForms(t *testing.T) {
-	for _, c := range []struct{ x, df, want float64 }{
-		{10 / math.Sqrt2, 300, 1.0846976779505501e-11 / 2},
-		{20, 2000, 1.43579484e-81},
-		{0.5, 2000, 0.30856504},
-		{5, 2000, 6.23289784e-07 / 2},
-	} {
-		tol := 1e-8 // as printed
-		if c.df == 300 {
-			tol = 1e-12
-		}
-		nearPart(t, "t", TUpper(c.x, c.df), c.want, tol)
-	}
-	for _, x := range []float64{0, 0.1, 0.5, 0.99, 1, 2, 7, 20, 40} {
-		below, above := TUpper(x, tMany), TUpper(x, tMany*(1+1e-9))
-		nearPart(t, "both forms at the limit", above, below, 1e-6)
-		if direct := overScale(tMany, 1, func(s float64) float64 { return NormalUpper(x * s) }); !(math.Abs(direct-below) <= 1e-12*below) {
-			t.Errorf("t %v: forms give %.16g and %.16g", x, below, direct)
+// Student's t is a normal value over such a standard deviation: the same tail by
+// another way, also against scipy 1.10.1, 2*scipy.stats.t.sf(10/2**.5, 300).
+func TestTailOfTAsMean(t *testing.T) {
+	for _, df := range []float64{1, 2.5, 7, 30, 300, 999, 1001, 1e5, 1e9} {
+		for _, x := range []float64{0, 0.1, 0.45, 0.55, 1, 2, 7, 20, 40} {
+			want := overScale(df, 1, func(s float64) float64 { return NormalUpper(x * s) })
+			nearPart(t, "tail of t", TUpper(x, df), want, 1e-11)
 		}
 	}
+	nearPart(t, "scipy", StudentizedRangeUpper(10, 2, 300), 1.0846976779505501e-11, 1e-12)
 }
