@@ -1,0 +1,226 @@
+package gauge
+
+import (
+	"cmp"
+	"fmt"
+	"math"
+	"slices"
+
+	"gatesill/fit/stats"
+)
+
+const (
+	// fewestInOrder is how many values of devices that were measured once each may
+	// tell of a drift: below, the rank correlation cannot fall under 1 %.
+	fewestInOrder = 8
+	// fewestDriftDF is how many degrees of freedom a slope needs at least.
+	fewestDriftDF = 3
+)
+
+// DriftsOf looks for a change of the readings along each sitting.
+//
+// Where devices were put in again: the slope of value on place within the
+// devices, by least squares, s² with N - devices - 1 degrees of freedom, interval
+// and p by Student's t. Otherwise the values of the devices in their order: the
+// median of the slopes of all pairs with the interval that belongs to the rank
+// correlation, and its p; that may be the order of the parts as well. pAdjusted is p
+// times the number of sittings looked at.
+//
+// The first device of a sitting put in again in its last fifth: its change
+// against 2·√2·u, u the repeatability, where it is enough, else the reading's own.
+//
+// Inputs: measurings in any order, not modified; those without a value are left
+// out. Source: H. Theil (1950) and P. K. Sen, J. Am. Stat. Assoc. 63 (1968)
+// 1379-1389; M. G. Kendall, Biometrika 30 (1938) 81 (from memory). Checked:
+// TestDriftByHand, TestDriftFalseAlarms.
+func DriftsOf(ms []Measuring, r Repeatability) []Drift {
+	bySitting := map[string][]Measuring{}
+	var sittings []string
+	for _, m := range withValue(ms) {
+		if _, ok := bySitting[m.Sitting]; !ok {
+			sittings = append(sittings, m.Sitting)
+		}
+		bySitting[m.Sitting] = append(bySitting[m.Sitting], m)
+	}
+	var out []Drift
+	tried := 0
+	for _, s := range sittings {
+		list := bySitting[s]
+		slices.SortStableFunc(list, func(a, b Measuring) int { return cmp.Compare(a.Place, b.Place) })
+		d := driftIn(list)
+		d.Sitting, d.First = s, firstAgain(list, r)
+		if !math.IsNaN(d.P) {
+			tried++
+		}
+		if !math.IsNaN(d.P) || d.First != nil {
+			out = append(out, d)
+		}
+	}
+	for i := range out {
+		out[i].PAdjusted = math.Min(1, out[i].P*float64(tried))
+		out[i].say()
+	}
+	return out
+}
+
+// Seen reports whether the drift is more than chance makes (5 % over all
+// sittings).
+func (d *Drift) Seen() bool { return d.PAdjusted < 1-level }
+
+func driftIn(list []Measuring) Drift {
+	d := Drift{Measurings: len(list), PerPlace: noEstimate(), P: math.NaN(), PAdjusted: math.NaN(), Over: math.NaN()}
+	byDevice := map[string][]Measuring{}
+	for _, m := range list {
+		byDevice[m.Device] = append(byDevice[m.Device], m)
+	}
+	d.Devices = len(byDevice)
+	if !d.within(list, byDevice) && len(byDevice) == len(list) && len(list) >= fewestInOrder {
+		x, y := make([]float64, len(list)), make([]float64, len(list))
+		for i, m := range list {
+			x[i], y[i] = float64(m.Place), m.Value
+		}
+		d.PerPlace, d.P = medianSlope(x, y)
+	}
+	if n := len(list); n > 1 {
+		d.Over = d.PerPlace.Value * float64(list[n-1].Place-list[0].Place)
+	}
+	return d
+}
+
+// within fits the slope within the devices; false where too few were put in again.
+func (d *Drift) within(list []Measuring, byDevice map[string][]Measuring) bool {
+	type means struct{ x, y float64 }
+	mean := map[string]means{}
+	for name, ms := range byDevice {
+		var m means
+		for _, o := range ms {
+			m.x += float64(o.Place) / float64(len(ms))
+			m.y += o.Value / float64(len(ms))
+		}
+		mean[name] = m
+	}
+	var xx, xy, yy float64
+	for _, m := range list {
+		c := mean[m.Device]
+		x, y := float64(m.Place)-c.x, m.Value-c.y
+		xx, xy, yy = xx+x*x, xy+x*y, yy+y*y
+	}
+	df := float64(len(list) - len(byDevice) - 1)
+	if df < fewestDriftDF || !(xx > 0) {
+		return false
+	}
+	slope := xy / xx
+	se := math.Sqrt(math.Max(0, yy-slope*xy) / df / xx)
+	t := stats.UpperT((1-level)/2, df)
+	d.Again = true
+	d.PerPlace = Estimate{Value: slope, Low: slope - t*se, High: slope + t*se, DF: df}
+	if se > 0 {
+		d.P = 2 * stats.TUpper(math.Abs(slope)/se, df)
+	} else if slope == 0 {
+		d.P = 1
+	} else {
+		d.P = 0
+	}
+	return true
+}
+
+// medianSlope is the median of the slopes of all pairs, its interval, and the p of
+// the rank correlation (normal approximation, ties counted).
+func medianSlope(x, y []float64) (Estimate, float64) {
+	var slopes []float64
+	s := 0.0
+	ties := map[float64]float64{}
+	for i := range x {
+		ties[y[i]]++
+		for j := range i {
+			if x[i] == x[j] {
+				continue
+			}
+			b := (y[i] - y[j]) / (x[i] - x[j])
+			slopes = append(slopes, b)
+			switch {
+			case b > 0:
+				s++
+			case b < 0:
+				s--
+			}
+		}
+	}
+	n := float64(len(x))
+	variance := n * (n - 1) * (2*n + 5)
+	for _, t := range ties {
+		variance -= t * (t - 1) * (2*t + 5)
+	}
+	variance /= 18
+	slices.Sort(slopes)
+	e := noEstimate()
+	if len(slopes) == 0 || !(variance > 0) {
+		return e, math.NaN()
+	}
+	e.Value = stats.MedianSorted(slopes)
+	reach := z95 * math.Sqrt(variance)
+	m := float64(len(slopes))
+	low, high := int(math.Floor((m-reach)/2))-1, int(math.Ceil((m+reach)/2))
+	if low >= 0 && high < len(slopes) {
+		e.Low, e.High = slopes[low], slopes[high]
+	}
+	return e, 2 * stats.NormalUpper(math.Max(0, math.Abs(s)-1)/math.Sqrt(variance))
+}
+
+// firstAgain compares the first insertion of a sitting with that of the same
+// device in its last fifth.
+func firstAgain(list []Measuring, r Repeatability) *Again {
+	n := len(list)
+	if n < 5 {
+		return nil
+	}
+	for i := n - 1; i >= n-max(1, n/5); i-- {
+		a, b := list[0], list[i]
+		if a.Device != b.Device {
+			continue
+		}
+		u := math.Max(a.U, b.U)
+		if r.Enough() && !(u > r.Value) {
+			u = r.Value
+		}
+		out := &Again{Device: a.Device, Place: b.Place, Change: b.Value - a.Value, Limit: 2 * sqrt2 * u}
+		out.Beyond = math.Abs(out.Change) > out.Limit
+		return out
+	}
+	return nil
+}
+
+// say words the drift.
+func (d *Drift) say() {
+	switch {
+	case math.IsNaN(d.P):
+	case d.Seen() && d.Again:
+		d.Text = fmt.Sprintf("the same devices read %s from the first place to the last (p %s): the bench drifts", signed(d.Over), pWords(d.PAdjusted))
+	case d.Seen():
+		d.Text = fmt.Sprintf("the values move by %s along the order (p %s): the bench drifts, or the parts lay in that order; put some in again to tell", signed(d.Over), pWords(d.PAdjusted))
+	default:
+		d.Text = fmt.Sprintf("no drift seen (%s, p %s)", d.overWords(), pWords(d.PAdjusted))
+	}
+	if f := d.First; f != nil {
+		text := fmt.Sprintf("%s, the first, read %s when put in again at place %d", f.Device, signed(f.Change), f.Place)
+		switch {
+		case math.IsNaN(f.Limit):
+		case f.Beyond:
+			text += fmt.Sprintf(", more than %s (2√2 u)", volts(f.Limit))
+		default:
+			text += fmt.Sprintf(", within %s (2√2 u)", volts(f.Limit))
+		}
+		if d.Text != "" {
+			d.Text += "; "
+		}
+		d.Text += text
+	}
+}
+
+func (d *Drift) overWords() string {
+	places := d.Over / d.PerPlace.Value
+	if math.IsNaN(d.PerPlace.Low) || math.IsNaN(places) || math.IsInf(places, 0) {
+		return "over the sitting " + signed(d.Over)
+	}
+	return fmt.Sprintf("over the sitting %s, 95 %% between %s and %s", signed(d.Over), signed(d.PerPlace.Low*places), signed(d.PerPlace.High*places))
+}
