@@ -37,13 +37,19 @@ func TUpper(t, df float64) float64 {
 	case t < 0:
 		return 1 - TUpper(-t, df)
 	}
-	// t² may pass the range of numbers, and for small t the other form keeps
-	// the digits of df/(df+t²).
-	if t*t < df {
+	switch {
+	case df > tMany:
+		// A power of df/2 of a number next to 1 would lose its digits.
+		return overScale(df, 1, func(s float64) float64 { return NormalUpper(t * s) })
+	case t < 1:
+		// The other form would lose the digits of df/(df+t²); 0.5 has none to lose yet.
 		return 0.5 - mathext.RegIncBeta(0.5, df/2, t*t/(df+t*t))/2
 	}
 	return mathext.RegIncBeta(df/2, 0.5, 1/(1+t/df*t)) / 2
 }
+
+// tMany is the degrees of freedom above which [TUpper] averages the normal tail.
+const tMany = 1000
 
 // ChiSquareUpper is the probability that chi-square with df degrees of freedom
 // exceeds x.
