@@ -145,7 +145,7 @@ func TestBudgetAddsUp(t *testing.T) {
 			rs = append(rs, One(other, s))
 			again := Combine(rs, []string{"up", "down"}) // the same with the device put in anew
 			for _, k := range []Key{KeyVgsth, KeyVgsIdle} {
-				Repeated(&again, k, []Quantity{*rs[0].At(k), *rs[1].At(k)}, 10e-3, 20)
+				Repeated(&again, k, []Quantity{*rs[0].At(k), *rs[1].At(k)}, 10e-3, 10e-3, 20)
 			}
 			for _, r := range append(slices.Clone(rs), Combine(rs, []string{"up", "down"}), again) {
 				for _, k := range Keys {

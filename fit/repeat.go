@@ -42,13 +42,14 @@ func (q *Quantity) NotBelow(floor, nu float64) {
 // apart.
 //
 // Where sweeps disagree by their own uncertainties only, and not by more than
-// three standard deviations of a difference between two insertions (corrected for
-// the number of pairs), the value is the plain mean of the insertions and the
+// three standard deviations of a difference between two insertions (of across, which
+// holds besides sigma what operators and fixtures differ by; corrected for the number
+// of pairs), the value is the plain mean of the insertions and the
 // warning sweeps-disagree goes. The random uncertainty is not below sigma/√n of n
 // insertions, or sigma where the value is that of a single one.
 //
 // Changes r in quantity k only. Checked: TestRepeated.
-func Repeated(r *Result, k Key, ins []Quantity, sigma, nu float64) {
+func Repeated(r *Result, k Key, ins []Quantity, sigma, across, nu float64) {
 	q := r.At(k)
 	if q == nil || !q.Ok() || !(sigma > 0) {
 		return
@@ -67,7 +68,7 @@ func Repeated(r *Result, k Key, ins []Quantity, sigma, nu float64) {
 			low, high, sum = math.Min(low, x.Value), math.Max(high, x.Value), sum+x.Value
 		}
 		pairs := float64(n*(n-1)) / 2
-		most := stats.NormalQuantile(1-stats.NormalUpper(sweepsApart)/pairs) * math.Sqrt2 * sigma
+		most := stats.NormalQuantile(1-stats.NormalUpper(sweepsApart)/pairs) * math.Sqrt2 * math.Max(sigma, across)
 		if high-low <= most {
 			disagree = false
 			first := values[0]

@@ -66,7 +66,7 @@ func TestRepeated(t *testing.T) {
 			ins = append(ins, rs[len(rs)-1].Vgsth)
 		}
 		r := Combine(rs, dirs)
-		Repeated(&r, KeyVgsth, ins, sigma, 20)
+		Repeated(&r, KeyVgsth, ins, sigma, sigma, 20)
 		return r
 	}
 	const sigma = 1.5e-3

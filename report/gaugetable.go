@@ -1,9 +1,11 @@
 package report
 
 import (
+	"cmp"
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 
 	"gatesill/fit"
@@ -41,14 +43,36 @@ func GaugeTable(w io.Writer, s Sheet, g Gauge, style Style) error {
 	gaugeDrifts(p, g, style)
 	gaugeCharts(p, g, style)
 	for i := range g.History {
-		gaugeHistory(p, &g.History[i], style)
+		gaugeHistory(p, &s, &g.History[i], style)
 	}
 	if len(g.Warnings) > 0 {
 		p.line("")
 		p.line("%s", style.paint("Mind", bold))
-		lotWarnings(p, s, g.Warnings, style)
+		gaugeWarnings(p, s, g.Warnings, style)
 	}
 	return p.err
+}
+
+// toldAbove are the codes whose sentence stands above in the part that it is about:
+// of these only what to do next is said.
+var toldAbove = []string{
+	fit.CodeOrderNotRandom, fit.CodeOperatorsDiffer, fit.CodeBenchCoarse, fit.CodeBenchDrift, fit.CodeControlOutside, fit.CodeControlTrend,
+	fit.CodeDeviceChanged, fit.CodeAllShifted,
+}
+
+func gaugeWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
+	var rest []fit.Warning
+	var said []string
+	for _, w := range list {
+		switch {
+		case !slices.Contains(toldAbove, w.Code):
+			rest = append(rest, w)
+		case !slices.Contains(said, w.Code):
+			said = append(said, w.Code)
+			wrapped(p, "", "  ", Clean(w.Code)+": "+Clean(s.Advice(w.Code).Next), style.Width)
+		}
+	}
+	lotWarnings(p, s, rest, style)
 }
 
 // gaugeNone says what to measure where no device was put in twice.
@@ -183,7 +207,8 @@ func signedVolts(x float64) string {
 
 func gaugeLevels(p *printer, g Gauge, style Style) {
 	for _, f := range g.Study.Factors {
-		if len(f.Levels) < 2 {
+		// Dates of a history are told as such.
+		if len(f.Levels) < 2 || f.Name == "session" && !(g.Study.Repeatability.DF > 0) {
 			continue
 		}
 		p.line("")
@@ -274,34 +299,16 @@ func gaugeCharts(p *printer, g Gauge, style Style) {
 	}
 }
 
-func gaugeHistory(p *printer, h *gauge.History, style Style) {
+// soon is within how many days two occasions are rather one study than a history:
+// its devices are listed only where one moved.
+const soon = 7
+
+func gaugeHistory(p *printer, s *Sheet, h *gauge.History, style Style) {
 	p.line("")
 	p.line("%s", style.paint(fmt.Sprintf("From %s to %s", occasionText(h.From), occasionText(h.To)), bold))
-	var names, raws, corrs, owns, marks []string
-	var values []float64
-	for _, c := range h.Changes {
-		names, values = append(names, Clean(c.Device)), append(values, c.First)
-		raws, corrs, owns = append(raws, signedVolts(c.Raw)), append(corrs, signedVolts(c.Corrected)), append(owns, signedVolts(c.Own))
-		mark := ""
-		if c.Changed {
-			mark = style.paint("changed or mixed up", red)
-		}
-		marks = append(marks, mark)
+	if len(h.ChangedDevices()) > 0 || !(h.Days < soon) {
+		p.grid(changeGrid(s, h, style))
 	}
-	for _, c := range h.Changes {
-		values = append(values, c.Last)
-	}
-	cells, unit := numbers("V", values, nil, func(int) string { return NotAvailable })
-	n := len(h.Changes)
-	cols := []column{
-		{head: "device", cells: names}, {head: "first", unit: unit, cells: cells[:n]}, {head: "last", unit: unit, cells: cells[n:]},
-		{head: "change", unit: "mV", cells: raws, right: true},
-	}
-	if isNumber(h.Corrected.Value) {
-		cols = append(cols, column{head: "corrected", unit: "mV", cells: corrs, right: true})
-	}
-	cols = append(cols, column{head: "its own", unit: "mV", cells: owns, right: true}, column{head: "", cells: marks, rank: 1})
-	p.grid(grid{style: style, cols: cols})
 	for _, t := range h.Texts {
 		wrapped(p, "", "  ", Clean(Sentence(t)), style.Width)
 	}
@@ -317,6 +324,58 @@ func gaugeHistory(p *printer, h *gauge.History, style Style) {
 	} else if isNumber(h.Limit) {
 		wrapped(p, "", "  ", fmt.Sprintf("None of %d devices moved by itself.", len(h.Changes)), style.Width)
 	}
+}
+
+// readTo is the step to which voltages are shown: that of the finest, between 1 mV
+// and 0.1 mV.
+func readTo(values []float64) float64 {
+	for _, v := range values {
+		if isNumber(v) && writtenDecimals(v) > 3 {
+			return 1e-4
+		}
+	}
+	return 1e-3
+}
+
+// changeGrid lists the devices of a history.
+func changeGrid(s *Sheet, h *gauge.History, style Style) grid {
+	var names, raws, corrs, owns, marks []string
+	var values []float64
+	changes := inOrder(s, h.Changes)
+	for _, c := range changes {
+		names, values = append(names, Clean(c.Device)), append(values, c.First)
+		raws, corrs, owns = append(raws, signedVolts(c.Raw)), append(corrs, signedVolts(c.Corrected)), append(owns, signedVolts(c.Own))
+		mark := ""
+		if c.Changed {
+			mark = style.paint("changed or mixed up", red)
+		}
+		marks = append(marks, mark)
+	}
+	for _, c := range changes {
+		values = append(values, c.Last)
+	}
+	cells, unit := numbersAt("V", values, nil, readTo(values), func(int) string { return NotAvailable })
+	n := len(h.Changes)
+	cols := []column{
+		{head: "device", cells: names}, {head: "first", unit: unit, cells: cells[:n]}, {head: "last", unit: unit, cells: cells[n:]},
+		{head: "change", unit: "mV", cells: raws, right: true},
+	}
+	if isNumber(h.Corrected.Value) {
+		cols = append(cols, column{head: "corrected", unit: "mV", cells: corrs, right: true})
+	}
+	cols = append(cols, column{head: "its own", unit: "mV", cells: owns, right: true}, column{head: "", cells: marks, rank: 1})
+	return grid{style: style, cols: cols}
+}
+
+// inOrder puts changes in the order of the lot's devices.
+func inOrder(s *Sheet, list []gauge.Change) []gauge.Change {
+	at := map[string]int{}
+	for i, d := range s.Devices {
+		at[d.Name] = i
+	}
+	list = slices.Clone(list)
+	slices.SortStableFunc(list, func(a, b gauge.Change) int { return cmp.Compare(at[a.Device], at[b.Device]) })
+	return list
 }
 
 // occasionText names a date with its temperature.

@@ -10,10 +10,6 @@ import (
 )
 
 const (
-	// d2 of two values: the mean range over the standard deviation; d4 of two: the
-	// upper limit of the range over its mean. 2/√π and 1 + 3·√(2 - 4/π)/(2/√π), to
-	// four digits as in tables of control charts (from memory, and by that formula).
-	d2, d4 = 1.1284, 3.2665
 	// enoughPoints is how many points limits must rest on (common practice, no source).
 	enoughPoints = 20
 	// fewestPoints is from how many on there are limits at all.
@@ -91,27 +87,26 @@ func chartOf(ms []Measuring, tempco float64) (Chart, bool) {
 
 // limits works out mean, limits and trend.
 func (c *Chart) limits() {
-	values := make([]float64, len(c.Points))
-	x := make([]float64, len(c.Points))
-	sum := 0.0
+	n := len(c.Points)
+	values, x := make([]float64, n), make([]float64, n)
 	for i := range c.Points {
 		values[i], x[i] = c.Points[i].Value, float64(i)
-		if i > 0 {
-			c.Points[i].Range = math.Abs(values[i] - values[i-1])
-			sum += c.Points[i].Range
-		}
 	}
-	n := len(values)
+	chart := stats.IndividualsChart(values)
+	for i, r := range chart.Spreads {
+		c.Points[i+1].Range = r
+	}
 	c.Provisional = n < enoughPoints
 	c.Centre = stats.Mean(values)
 	if n < fewestPoints {
 		return
 	}
-	mr := sum / float64(n-1)
-	c.Low, c.High, c.RangeHigh = c.Centre-3*mr/d2, c.Centre+3*mr/d2, d4*mr
-	for i := range c.Points {
-		p := &c.Points[i]
-		p.Outside = p.Value < c.Low || p.Value > c.High || p.Range > c.RangeHigh
+	c.Low, c.High, c.RangeHigh = chart.Level.Low, chart.Level.High, chart.Spread.High
+	for _, i := range chart.Level.Outside(chart.Points) {
+		c.Points[i].Outside = true
+	}
+	for _, i := range chart.Spread.Outside(chart.Spreads) {
+		c.Points[i+1].Outside = true
 	}
 	if n >= fewestInOrder {
 		c.Trend, c.TrendP = medianSlope(x, values)

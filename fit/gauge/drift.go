@@ -13,6 +13,8 @@ const (
 	// fewestInOrder is how many values of devices that were measured once each may
 	// tell of a drift: below, the rank correlation cannot fall under 1 %.
 	fewestInOrder = 8
+	// mostInOrder is how many of them are looked at: the time grows with the square.
+	mostInOrder = 1500
 	// fewestDriftDF is how many degrees of freedom a slope needs at least.
 	fewestDriftDF = 3
 )
@@ -79,6 +81,13 @@ func driftIn(list []Measuring) Drift {
 		for i, m := range list {
 			x[i], y[i] = float64(m.Place), m.Value
 		}
+		for len(x) > mostInOrder { // every second one
+			n := len(x) / 2
+			for i := range n {
+				x[i], y[i] = x[2*i], y[2*i]
+			}
+			x, y = x[:n], y[:n]
+		}
 		d.PerPlace, d.P = medianSlope(x, y)
 	}
 	if n := len(list); n > 1 {
@@ -124,47 +133,11 @@ func (d *Drift) within(list []Measuring, byDevice map[string][]Measuring) bool {
 	return true
 }
 
-// medianSlope is the median of the slopes of all pairs, its interval, and the p of
-// the rank correlation (normal approximation, ties counted).
+// medianSlope is the median of the slopes of all pairs with its interval, and the p
+// of the rank correlation.
 func medianSlope(x, y []float64) (Estimate, float64) {
-	var slopes []float64
-	s := 0.0
-	ties := map[float64]float64{}
-	for i := range x {
-		ties[y[i]]++
-		for j := range i {
-			if x[i] == x[j] {
-				continue
-			}
-			b := (y[i] - y[j]) / (x[i] - x[j])
-			slopes = append(slopes, b)
-			switch {
-			case b > 0:
-				s++
-			case b < 0:
-				s--
-			}
-		}
-	}
-	n := float64(len(x))
-	variance := n * (n - 1) * (2*n + 5)
-	for _, t := range ties {
-		variance -= t * (t - 1) * (2*t + 5)
-	}
-	variance /= 18
-	slices.Sort(slopes)
-	e := noEstimate()
-	if len(slopes) == 0 || !(variance > 0) {
-		return e, math.NaN()
-	}
-	e.Value = stats.MedianSorted(slopes)
-	reach := z95 * math.Sqrt(variance)
-	m := float64(len(slopes))
-	low, high := int(math.Floor((m-reach)/2))-1, int(math.Ceil((m+reach)/2))
-	if low >= 0 && high < len(slopes) {
-		e.Low, e.High = slopes[low], slopes[high]
-	}
-	return e, 2 * stats.NormalUpper(math.Max(0, math.Abs(s)-1)/math.Sqrt(variance))
+	m := stats.MedianSlope(x, y, level)
+	return Estimate{Value: m.Slope, Low: m.Low, High: m.High, DF: float64(len(x) - 2)}, m.P
 }
 
 // firstAgain compares the first insertion of a sitting with that of the same
@@ -219,8 +192,8 @@ func (d *Drift) say() {
 
 func (d *Drift) overWords() string {
 	places := d.Over / d.PerPlace.Value
-	if math.IsNaN(d.PerPlace.Low) || math.IsNaN(places) || math.IsInf(places, 0) {
-		return "over the sitting " + signed(d.Over)
+	if math.IsNaN(d.PerPlace.Low) || math.IsInf(d.PerPlace.Low, 0) || math.IsNaN(places) || math.IsInf(places, 0) {
+		return "over the session " + signed(d.Over)
 	}
-	return fmt.Sprintf("over the sitting %s, 95 %% between %s and %s", signed(d.Over), signed(d.PerPlace.Low*places), signed(d.PerPlace.High*places))
+	return fmt.Sprintf("over the session %s, 95 %% between %s and %s", signed(d.Over), signed(d.PerPlace.Low*places), signed(d.PerPlace.High*places))
 }

@@ -64,10 +64,10 @@ func (f *Finding) add(code, format string, args ...any) {
 
 // None is the repeatability that is not known.
 func None() Repeatability {
-	return Repeatability{Estimate: noEstimate()}
+	return Repeatability{Estimate: noEstimate(), Across: math.NaN()}
 }
 
 // Given is a repeatability told by the user, in V.
 func Given(sigma float64) Repeatability {
-	return Repeatability{Estimate: Estimate{Value: sigma, Low: math.NaN(), High: math.NaN(), DF: math.Inf(1)}, Basis: "given"}
+	return Repeatability{Estimate: Estimate{Value: sigma, Low: math.NaN(), High: math.NaN(), DF: math.Inf(1)}, Across: sigma, Basis: "given"}
 }

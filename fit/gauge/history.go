@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"time"
 
 	"gatesill/fit/stats"
 )
@@ -71,7 +72,7 @@ func HistoryOf(ms []Measuring, o HistoryOptions) []History {
 		}
 		h := groups[p]
 		if h == nil {
-			h = &History{From: newOccasion(p.from), To: newOccasion(p.to), Tempco: o.Tempco}
+			h = &History{From: newOccasion(p.from), To: newOccasion(p.to), Days: daysBetween(p.from, p.to), Tempco: o.Tempco}
 			groups[p] = h
 			order = append(order, p)
 		}
@@ -92,6 +93,16 @@ func HistoryOf(ms []Measuring, o HistoryOptions) []History {
 }
 
 func newOccasion(name string) Occasion { return Occasion{name, math.NaN(), math.NaN()} }
+
+// daysBetween is the time between two dates in days, NaN where one is none.
+func daysBetween(from, to string) float64 {
+	a, err := time.Parse(time.DateOnly, from)
+	b, err2 := time.Parse(time.DateOnly, to)
+	if err != nil || err2 != nil {
+		return math.NaN()
+	}
+	return b.Sub(a).Hours() / 24
+}
 
 // take widens the temperatures of an occasion.
 func (o *Occasion) take(t float64) {
@@ -133,6 +144,7 @@ func changeOf(list []Measuring, from, to string, h *History, tempco float64) (c 
 // judge works out what is common to all and which device moved by itself.
 func (h *History) judge(known Repeatability, weights []float64) {
 	n := len(h.Changes)
+	weight := stats.Mean(weights)
 	raw, corrected := make([]float64, n), make([]float64, n)
 	for i, c := range h.Changes {
 		raw[i], corrected[i] = c.Raw, c.Corrected
@@ -140,15 +152,15 @@ func (h *History) judge(known Repeatability, weights []float64) {
 	base := raw
 	h.Corrected = noEstimate()
 	if !slices.ContainsFunc(corrected, math.IsNaN) {
-		h.Corrected = medianOf(corrected)
+		h.Corrected = medianOf(corrected, known, weight)
 		base = corrected
 	}
-	h.Raw = medianOf(raw)
+	h.Raw = medianOf(raw, known, weight)
 	h.FromDiffs, h.Sigma, h.SigmaDF, h.Limit, h.LimitOne = math.NaN(), math.NaN(), math.NaN(), math.NaN(), math.NaN()
 	common := 0.0 // fewer devices cannot tell their own change from the bench's
 	if n >= fewestChanged {
 		common = stats.Median(base)
-		h.FromDiffs = stats.MAD(base) * madToSD / sqrt2
+		h.FromDiffs = stats.MAD(base) * madToSD / math.Sqrt(2*weight)
 	}
 	own := make([]float64, n)
 	for i := range h.Changes {
@@ -203,9 +215,21 @@ func (h *History) byOneAnother(own []float64) {
 	h.Limit = stats.UpperT(oneInTwoU/float64(2*len(own)), n-1) * stats.SD(rest) * math.Sqrt(1+1/n)
 }
 
-// medianOf is the median with its interval by order statistics, of at least 95 %.
-func medianOf(x []float64) Estimate {
+// medianOf is the median with its interval: from the repeatability where that is
+// known (its standard error √(π/2) times that of the mean), else by order statistics
+// and of at least 95 %. weight is the variance of a change in units of that between
+// two single insertions.
+func medianOf(x []float64, known Repeatability, weight float64) Estimate {
 	s := stats.Sorted(x)
+	if known.Value > 0 && known.DF > 0 {
+		m := stats.MedianSorted(s)
+		t := z95
+		if !math.IsInf(known.DF, 1) {
+			t = stats.UpperT((1-level)/2, known.DF)
+		}
+		reach := t * math.Sqrt(math.Pi/2) * known.Value * math.Sqrt(2*weight/float64(len(s)))
+		return Estimate{Value: m, Low: m - reach, High: m + reach, DF: known.DF}
+	}
 	e := Estimate{Value: stats.MedianSorted(s), Low: math.NaN(), High: math.NaN(), DF: float64(len(s) - 1)}
 	// P(fewer than k of n below the median), by the binomial distribution with 1/2.
 	n, k := len(s), 0
@@ -243,6 +267,7 @@ func (h *History) ChangedDevices() []string {
 
 // say words the history.
 func (h *History) say() {
+	raw := signed(h.Raw.Value) + between(h.Raw)
 	add := func(format string, args ...any) { h.Texts = append(h.Texts, fmt.Sprintf(format, args...)) }
 	n := len(h.Changes)
 	if n < fewestChanged {
@@ -252,13 +277,13 @@ func (h *History) say() {
 	switch {
 	case n < fewestChanged:
 	case !math.IsNaN(h.Corrected.Value) && !h.Moved():
-		add("all together: %s as read, %s after %s: the temperature, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), h.coefficient())
+		add("all together: %s as read, %s%s after %s: the temperature, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), between(h.Corrected), h.coefficient())
 	case !math.IsNaN(h.Corrected.Value):
-		add("all together: %s as read, %s after %s: common to all, so the bench or the coefficient, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), h.coefficient())
+		add("all together: %s as read, %s%s after %s: common to all, so the bench or the coefficient, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), between(h.Corrected), h.coefficient())
 	case h.Moved():
-		add("all together: %s: common to all, so the bench or the temperature, not the parts", signed(h.Raw.Value))
+		add("all together: %s: common to all, so the bench or the temperature, not the parts", raw)
 	default:
-		add("all together: %s, no more than chance", signed(h.Raw.Value))
+		add("all together: %s, no more than chance", raw)
 	}
 	if math.IsNaN(h.Corrected.Value) {
 		switch {
@@ -270,6 +295,14 @@ func (h *History) say() {
 			add("measured at other temperatures, and not corrected: give the coefficient of the part, for instance --tempco -4mV/K")
 		}
 	}
+}
+
+// between writes the interval of an estimate in brackets.
+func between(e Estimate) string {
+	if math.IsNaN(e.Low) || math.IsNaN(e.High) {
+		return ""
+	}
+	return fmt.Sprintf(" (95 %%: %s to %s)", signed(e.Low), signed(e.High))
 }
 
 func (h *History) coefficient() string {

@@ -41,6 +41,12 @@ func StudyOf(ms []Measuring) Study {
 		s.MoreRepeats = max(0, FewestDF-int(r.DF)-s.MoreDevices)
 	}
 	s.Factors = factors(ms, cells)
+	for i, f := range s.Factors {
+		// Of two that cannot be told apart the first stands for both.
+		if f.Name != "session" && f.SD.Value > 0 && (f.With == "" || i == 0) {
+			r.Across = math.Hypot(r.Across, f.SD.Value)
+		}
+	}
 	s.theLot(ms)
 	s.Order = orderOf(ms)
 	s.warn(ms, cells)
@@ -119,8 +125,14 @@ func repeatability(cells []cell) Repeatability {
 		return r
 	}
 	r.Estimate = sdOf(sum/float64(df), float64(df))
-	r.Basis = fmt.Sprintf("%s x %d", count(r.Devices, "device"), r.Measurings/r.Devices)
-	if !even || r.Measurings%r.Devices != 0 {
+	r.Across = r.Value
+	times := r.Devices * r.Rounds
+	switch {
+	case even && r.Measurings == times:
+		r.Basis = fmt.Sprintf("%s x %d", count(r.Devices, "device"), r.Rounds)
+	case even && r.Measurings%times == 0:
+		r.Basis = fmt.Sprintf("%s x %d in %d sessions", count(r.Devices, "device"), r.Rounds, r.Measurings/times)
+	default:
 		r.Basis = fmt.Sprintf("%s, %d times in all", count(r.Devices, "device"), r.Measurings)
 	}
 	return r
@@ -164,7 +176,9 @@ func (s *Study) theLot(ms []Measuring) {
 	df, rdf := float64(len(names)-1), s.Repeatability.DF
 	seen := stats.SD(means)
 	own := math.Max(0, seen*seen-r*r*inverse)
-	s.Lot = Estimate{Value: math.Sqrt(own), DF: df, Low: math.NaN(), High: math.NaN()}
+	bare := sdOf(seen*seen, df)
+	without := func(sd float64) float64 { return math.Sqrt(math.Max(0, sd*sd-r*r*inverse)) }
+	s.Lot = Estimate{Value: math.Sqrt(own), DF: df, Low: without(bare.Low), High: without(bare.High)}
 	// share of the variances: seen²/r² is lot²/r² + 1/n, distributed as F.
 	share := func(ratio float64) float64 {
 		return 1 / math.Sqrt(1+math.Max(0, ratio-inverse))
@@ -175,12 +189,7 @@ func (s *Study) theLot(ms []Measuring) {
 		Low:  share(ratio / stats.FQuantile((1-level)/2, df, rdf)),
 		High: share(ratio / stats.FQuantile((1+level)/2, df, rdf)),
 	}
-	all := r * r
-	for _, f := range s.Factors {
-		if f.Name != "session" && f.SD.Value > 0 && f.With == "" {
-			all += f.SD.Value * f.SD.Value
-		}
-	}
+	all := s.Repeatability.Across * s.Repeatability.Across
 	if all > r*r {
 		s.SharedBy = math.Sqrt(all / (all + own))
 	}

@@ -29,11 +29,12 @@ type Estimate struct {
 // Repeatability is the standard deviation of one and the same device that is put
 // in again, within a sitting, with what it rests on.
 type Repeatability struct {
-	Estimate          // V
-	Devices    int    // put in at least twice in one sitting
-	Measurings int    // of these devices in those sittings
-	Rounds     int    // most insertions of one device in one sitting
-	Basis      string // in words: "10 devices x 3", with the lot where it is another
+	Estimate           // V
+	Across     float64 // V, together with what operators and fixtures differ by
+	Devices    int     // put in at least twice in one sitting
+	Measurings int     // of these devices in those sittings
+	Rounds     int     // most insertions of one device in one sitting
+	Basis      string  // in words: "10 devices x 3", with the lot where it is another
 }
 
 // What a repeatability must rest on before anything else may use it: fewer
@@ -151,6 +152,7 @@ type ChartPoint struct {
 // History is what became of devices between two occasions.
 type History struct {
 	From, To   Occasion
+	Days       float64 // between the two; NaN: not both are dates
 	Changes    []Change
 	Raw        Estimate // V, median change of all devices with its interval
 	Corrected  Estimate // V, the same after the temperature; Value NaN: no coefficient or no temperatures

@@ -55,7 +55,7 @@ func takeRepeatability(ctx context.Context, db *store.DB, s *report.Sheet, metho
 			for _, res := range ins[d] {
 				qs = append(qs, *res.At(key))
 			}
-			fit.Repeated(&d.Result, key, qs, r.Value, r.DF)
+			fit.Repeated(&d.Result, key, qs, r.Value, r.Across, r.DF)
 		}
 	}
 	return nil
