@@ -171,6 +171,8 @@ func (d *Drift) say() {
 		d.Text = fmt.Sprintf("the same devices read %s from the first place to the last (p %s): the bench drifts", signed(d.Over), pWords(d.PAdjusted))
 	case d.Seen():
 		d.Text = fmt.Sprintf("the values move by %s along the order (p %s): the bench drifts, or the parts lay in that order; put some in again to tell", signed(d.Over), pWords(d.PAdjusted))
+	case !d.Again:
+		d.Text = "no drift seen, but devices that were measured once each would show a large one only" + d.atLeast() + ": put the first one in again at the end"
 	default:
 		d.Text = fmt.Sprintf("no drift seen (%s, p %s)", d.overWords(), pWords(d.PAdjusted))
 	}
@@ -188,6 +190,15 @@ func (d *Drift) say() {
 		}
 		d.Text += text
 	}
+}
+
+// atLeast says what drift would have been seen.
+func (d *Drift) atLeast() string {
+	half := math.Max(math.Abs(d.PerPlace.Low), math.Abs(d.PerPlace.High)) * float64(d.Measurings-1)
+	if math.IsNaN(half) || math.IsInf(half, 0) {
+		return ""
+	}
+	return " (of some " + volts(half) + ")"
 }
 
 func (d *Drift) overWords() string {

@@ -34,8 +34,8 @@ const (
 // temperatures. FromDiffs: 1.4826 × MAD of the changes about their median, over √2.
 // Limits for a device's own change (less the median): 2·√2·sigma for one alone,
 // t·√2·sigma with the probability of 4.55 % divided by the number of devices for
-// all of them, where sigma is known from a study; means of several insertions count
-// as such. Otherwise the devices judge one another: those beyond by the
+// all of them, where sigma is known from a study; where the values are means
+// of several insertions, smaller by so much. Otherwise the devices judge one another: those beyond by the
 // generalised extreme studentised deviate test at 4.55 % are changed, and the limit
 // is that of a prediction from the others, t·s·√(1 + 1/n).
 //
@@ -170,15 +170,16 @@ func (h *History) judge(known Repeatability, weights []float64) {
 	switch {
 	case known.Value > 0 && known.DF > 0:
 		h.Sigma, h.SigmaDF, h.SigmaBasis = known.Value, known.DF, known.Basis
-		h.Limit = limitFor(n, known.Value, known.DF)
+		limit := limitFor(n, known.Value, known.DF)
 		for i := range h.Changes {
-			h.Changes[i].Changed = math.Abs(own[i]) > h.Limit*math.Sqrt(weights[i])
+			h.Changes[i].Changed = math.Abs(own[i]) > limit*math.Sqrt(weights[i])
 		}
+		h.Limit, h.LimitOne = limit*math.Sqrt(weight), 2*math.Sqrt(2*weight)*known.Value
 	case n >= fewestChanged+1 && h.FromDiffs >= 0:
 		h.Sigma, h.SigmaBasis = h.FromDiffs, "differences of "+count(n, "device")
+		h.LimitOne = 2 * math.Sqrt(2*weight) * h.Sigma
 		h.byOneAnother(own)
 	}
-	h.LimitOne = 2 * sqrt2 * h.Sigma
 }
 
 // madToSD makes a standard deviation of the median absolute deviation of normal
@@ -263,6 +264,26 @@ func (h *History) ChangedDevices() []string {
 		}
 	}
 	return out
+}
+
+// Of says in one sentence what became of one device, "" where it is not among
+// them.
+func (h *History) Of(device string) string {
+	for _, c := range h.Changes {
+		switch {
+		case c.Device != device:
+			continue
+		case math.IsNaN(h.Limit):
+			return fmt.Sprintf("from %s to %s %s; too few devices or readings to tell whether that is its own", h.From.Name, h.To.Name, signed(c.Raw))
+		case c.Changed:
+			return fmt.Sprintf("from %s to %s it moved by %s besides what is common to the %d devices measured at both (limit %s): changed or mixed up: check the serial, measure again",
+				h.From.Name, h.To.Name, signed(c.Own), len(h.Changes), volts(h.Limit))
+		default:
+			return fmt.Sprintf("from %s to %s it moved by %s besides what is common to the %d devices measured at both, within the limit of %s",
+				h.From.Name, h.To.Name, signed(c.Own), len(h.Changes), volts(h.Limit))
+		}
+	}
+	return ""
 }
 
 // say words the history.

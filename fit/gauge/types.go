@@ -161,7 +161,7 @@ type History struct {
 	Sigma      float64  // V, repeatability that the limits rest on; NaN: none
 	SigmaDF    float64
 	SigmaBasis string
-	LimitOne   float64 // V, for one device alone: 2·√2·sigma
+	LimitOne   float64 // V, for one device alone: 2·√2·sigma, less for means of several insertions
 	Limit      float64 // V, corrected for the number of devices; NaN: too few
 	Texts      []string
 }
@@ -190,4 +190,14 @@ type Finding struct {
 	Charts   []Chart
 	History  []History
 	Warnings []fit.Warning
+}
+
+// Moment is what one device read in one sitting.
+type Moment struct {
+	Sitting   string
+	N         int     // insertions
+	Value     float64 // V, mean of them
+	Temp      float64 // °C; NaN: not known
+	Raw       float64 // V, less the first
+	Corrected float64 // V, the same less what the temperature explains; NaN: not known
 }

@@ -57,7 +57,6 @@ func Gauge(ctx context.Context, env *Env, name string, o SheetOptions, rq GaugeR
 	}
 	g := report.Gauge{By: by, Finding: gauge.FindingOf(measurings(sittingsOf(&s), by), known, rq.Tempco.Float()), Used: known}
 	if env.JSON {
-		env.tellWarnings(g.Warnings)
 		return report.GaugeJSON(env.Out, s, g)
 	}
 	return report.GaugeTable(env.Out, s, g, env.style())
