@@ -96,27 +96,16 @@ func quotedName(name string) string {
 func gaugeGrid(g Gauge, style Style) grid {
 	st := &g.Study
 	var what, value, low, high, df, n []string
-	var all []float64
-	list := []struct {
+	type line struct {
 		what string
 		e    gauge.Estimate
 		n    string
-	}{{"same device put in again", st.Repeatability.Estimate, st.Repeatability.Basis}}
+	}
+	list := []line{{"same device put in again", st.Repeatability.Estimate, st.Repeatability.Basis}}
 	for _, f := range st.Factors {
-		list = append(list, struct {
-			what string
-			e    gauge.Estimate
-			n    string
-		}{"between " + f.Name + "s", f.SD, fmt.Sprintf("%d %ss", len(f.Levels), f.Name)})
+		list = append(list, line{"between " + f.Name + "s", f.SD, fmt.Sprintf("%d %ss", len(f.Levels), f.Name)})
 	}
-	list = append(list, struct {
-		what string
-		e    gauge.Estimate
-		n    string
-	}{"between devices of the lot", st.Lot, fmt.Sprintf("%d devices", st.LotDevices)})
-	for _, l := range list {
-		all = append(all, l.e.Value)
-	}
+	list = append(list, line{"between devices of the lot", st.Lot, fmt.Sprintf("%d devices", st.LotDevices)})
 	sc := ScaleOf("V", st.Repeatability.Value)
 	for _, l := range list {
 		what, n = append(what, l.what), append(n, Clean(l.n))
@@ -151,6 +140,13 @@ func plainNumber(sc Scale, x float64) string {
 func gaugeMeaning(p *printer, g Gauge, style Style) {
 	st, say := &g.Study, func(format string, args ...any) { wrapped(p, "", "  ", fmt.Sprintf(format, args...), style.Width) }
 	r := st.Repeatability
+	if !r.Enough() {
+		say("Too few to tell, or nothing to see: no limit follows from this, and no u holds it.")
+		if g.Used.Value > 0 {
+			say("Used for what follows: %s (%s).", FormatTwoDigits(g.Used.Value, "V"), Clean(g.Used.Basis))
+		}
+		return
+	}
 	say("Two devices read once each differ when they lie more than %s apart (2·√2·sigma; at exactly 95 %% 1.96·√2·sigma, %s).", FormatTwoDigits(r.Counts(), "V"), FormatTwoDigits(r.Counts95(), "V"))
 	say("A bin narrower than %s would sort noise (4 sigma).", FormatTwoDigits(r.Width(), "V"))
 	if isNumber(st.Share.Value) {
@@ -178,11 +174,7 @@ func gaugeMeaning(p *printer, g Gauge, style Style) {
 	default:
 		say("Order: too few in each round to see whether it was random.")
 	}
-	if r.Enough() {
-		say("The u of every device of this lot holds this repeatability.")
-	} else if g.Used.Value > 0 {
-		say("Used for what follows: %s (%s).", FormatTwoDigits(g.Used.Value, "V"), Clean(g.Used.Basis))
-	}
+	say("The u of every device of this lot holds this repeatability.")
 }
 
 func percent(x float64) string {

@@ -29,7 +29,7 @@ const (
 // times the number of sittings looked at.
 //
 // The first device of a sitting put in again in its last fifth: its change
-// against 2·√2·u, u the repeatability, where it is enough, else the reading's own.
+// against 2·√2·u, u the repeatability; where that is not known nothing follows.
 //
 // Inputs: measurings in any order, not modified; those without a value are left
 // out. Source: H. Theil (1950) and P. K. Sen, J. Am. Stat. Assoc. 63 (1968)
@@ -156,8 +156,8 @@ func firstAgain(list []Measuring, r Repeatability) *Again {
 		if r.Enough() && !(u > r.Value) {
 			u = r.Value
 		}
-		out := &Again{Device: a.Device, Place: b.Place, Change: b.Value - a.Value, Limit: 2 * sqrt2 * u}
-		out.Beyond = math.Abs(out.Change) > out.Limit
+		out := &Again{Device: a.Device, Place: b.Place, Change: b.Value - a.Value, Limit: 2 * sqrt2 * u, Known: r.Enough()}
+		out.Beyond = out.Known && math.Abs(out.Change) > out.Limit
 		return out
 	}
 	return nil
@@ -180,6 +180,8 @@ func (d *Drift) say() {
 		text := fmt.Sprintf("%s, the first, read %s when put in again at place %d", f.Device, signed(f.Change), f.Place)
 		switch {
 		case math.IsNaN(f.Limit):
+		case !f.Known:
+			text += "; what the bench repeats to is not known, so that nothing follows from it"
 		case f.Beyond:
 			text += fmt.Sprintf(", more than %s (2√2 u)", volts(f.Limit))
 		default:

@@ -37,19 +37,26 @@ func TestFirstAgain(t *testing.T) {
 		ms = append(ms, Measuring{Device: fmt.Sprint("D", i), Place: i + 1, Value: 3 + 0.01*float64((i*7)%12), U: 0.5e-3})
 	}
 	ms[11].Device, ms[11].Value = "D0", ms[0].Value+1.5e-3
-	d := DriftsOf(ms, None())
+	d := DriftsOf(ms, Given(0.4e-3)) // the reading's own u is larger
 	if len(d) != 1 || d[0].First == nil || !d[0].First.Beyond {
 		t.Fatalf("1.5 mV against 2√2·0.5 mV = 1.41 mV: %+v", d)
 	}
 	ms[11].Value = ms[0].Value + 1.4e-3
-	if d := DriftsOf(ms, None()); d[0].First.Beyond {
+	if d := DriftsOf(ms, Given(0.4e-3)); d[0].First.Beyond {
 		t.Errorf("1.40 mV against 1.41 mV: beyond")
 	}
-	// A repeatability that is known and larger counts instead.
 	known := Repeatability{Estimate: Estimate{Value: 1e-3, DF: 20}, Devices: 10}
 	ms[11].Value = ms[0].Value + 2.5e-3
 	if d := DriftsOf(ms, known); d[0].First.Beyond {
 		t.Errorf("2.5 mV against 2.83 mV: beyond")
+	}
+	ms[11].Value = ms[0].Value + 2.9e-3
+	if d := DriftsOf(ms, known); !d[0].First.Beyond {
+		t.Errorf("2.9 mV against 2.83 mV: within")
+	}
+	// Without a repeatability a change says nothing.
+	if d := DriftsOf(ms, None()); d[0].First.Beyond {
+		t.Errorf("beyond without a repeatability")
 	}
 }
 

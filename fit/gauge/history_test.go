@@ -81,8 +81,8 @@ func TestHistoryHalfAYear(t *testing.T) {
 // probability of any is the same to first order.
 func TestHistoryLimit(t *testing.T) {
 	near(t, "one", limitFor(1, 1, math.Inf(1)), 2*math.Sqrt2, 1e-4)
-	// R 4.3.1: qnorm(1 - 0.0455/24) is 2.8946 (from memory of the table to 3 digits); times √2.
-	near(t, "twelve", limitFor(12, 1, math.Inf(1)), 2.895*math.Sqrt2, 2e-3)
+	// Python 3.11: statistics.NormalDist().inv_cdf(1 - 0.0455/24) is 2.894993265918276.
+	near(t, "twelve", limitFor(12, 1, math.Inf(1)), 2.894993265918276*math.Sqrt2, 1e-9)
 	if !(limitFor(12, 1, 10) > limitFor(12, 1, 100)) {
 		t.Error("fewer degrees of freedom do not widen the limit")
 	}

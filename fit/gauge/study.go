@@ -200,8 +200,8 @@ func (s *Study) theLot(ms []Measuring) {
 func (s *Study) warn(ms []Measuring, cells []cell) {
 	r := s.Repeatability
 	if r.DF > 0 && (r.Devices < FewestDevices || r.DF < FewestDF) {
-		s.add(fit.CodeTooFewRepeats, "too few to tell: %s with %.0f degrees of freedom, %d and %d are needed; %s",
-			count(r.Devices, "device"), r.DF, FewestDevices, FewestDF, s.more())
+		s.add(fit.CodeTooFewRepeats, "too few to tell: %s put in again %s beyond the first, %d and %d are needed; %s",
+			count(r.Devices, "device"), count(int(r.DF), "time"), FewestDevices, FewestDF, s.more())
 	}
 	if s.Order.Known && !s.Order.Random {
 		s.add(fit.CodeOrderNotRandom, "%s", s.Order.Text)

@@ -1,6 +1,10 @@
 package gauge
 
-import "gatesill/fit"
+import (
+	"math"
+
+	"gatesill/fit"
+)
 
 // Measuring is one insertion of one device: it was put in, read or swept (up and
 // down sweep without taking it out are one), and taken out.
@@ -46,9 +50,10 @@ const (
 	FewestDF      = 10
 )
 
-// Enough reports whether the repeatability may be used for other values.
+// Enough reports whether the repeatability may be used for other values; one that
+// was given is taken as it is.
 func (r Repeatability) Enough() bool {
-	return r.Devices >= FewestDevices && r.DF >= FewestDF && r.Value > 0
+	return r.Value > 0 && (r.Devices >= FewestDevices && r.DF >= FewestDF || math.IsInf(r.DF, 1))
 }
 
 // Study is what measurings of one lot say of the bench.
@@ -122,7 +127,8 @@ type Again struct {
 	Place  int     // in the order, of the last time
 	Change float64 // V, last less first
 	Limit  float64 // V, 2·√2·u; NaN: u is not known
-	Beyond bool
+	Known  bool    // u holds the repeatability; without it Limit is of the reading alone
+	Beyond bool    // the limit, and Known
 }
 
 // Chart is the control chart of one control part: individual values and moving

@@ -94,7 +94,8 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string, tempco record.N
 // timelineOf fills what the device read sitting by sitting, and whether it moved by
 // itself.
 func timelineOf(f *report.DeviceFile, s *report.Sheet) {
-	ms := measurings(sittingsOf(s), f.By)
+	runs, _ := mostly(sittingsOf(s))
+	ms := measurings(runs, f.By)
 	f.Timeline = gauge.TimelineOf(ms, f.Device.Name, f.Tempco)
 	if len(f.Timeline) < 2 {
 		return

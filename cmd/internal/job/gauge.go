@@ -4,6 +4,7 @@ import (
 	"context"
 	"crypto/sha256"
 	"encoding/binary"
+	"fmt"
 	"math"
 	"math/rand/v2"
 	"slices"
@@ -55,7 +56,12 @@ func Gauge(ctx context.Context, env *Env, name string, o SheetOptions, rq GaugeR
 	if x, ok := rq.Repeatability.Get(); ok {
 		known = gauge.Given(x)
 	}
-	g := report.Gauge{By: by, Finding: gauge.FindingOf(measurings(sittingsOf(&s), by), known, rq.Tempco.Float()), Used: known}
+	runs, left := mostly(sittingsOf(&s))
+	g := report.Gauge{By: by, Finding: gauge.FindingOf(measurings(runs, by), known, rq.Tempco.Float()), Used: known}
+	if left > 0 {
+		g.Warnings = append(g.Warnings, fit.Warning{Code: fit.CodeUnlikeConditions, Text: fmt.Sprintf(
+			"left out here: %s in another circuit than most (%s)", count(left, "measuring"), runs[0].circuit)})
+	}
 	if env.JSON {
 		return report.GaugeJSON(env.Out, s, g)
 	}

@@ -19,6 +19,8 @@ type sittingRun struct {
 	name       string         // as people read it, another for each
 	session    record.Session // zero: none is stored
 	occasion   string         // its day, else its name
+	circuit    string         // with what else must be alike, as of conditionOf
+	condition  string         // circuit, and temperature where there are several
 	start      string         // time of its first sweep, "" not known
 	insertions []insertion    // in the order in which they were measured
 }
@@ -53,6 +55,7 @@ func sittingsOf(s *report.Sheet) []sittingRun {
 	for _, x := range s.Sessions {
 		sessions[x.ID] = x
 	}
+	warm := warmth(s)
 	byKey := map[string][]placed{}
 	var keys []string
 	for i := range s.Devices {
@@ -66,6 +69,8 @@ func sittingsOf(s *report.Sheet) []sittingRun {
 			if key == "" {
 				key = first(day(sw.MeasuredAt), "imported "+imported[sw.SourceID])
 			}
+			// What is read in another circuit or much warmer is no repetition.
+			key += sittingMark + conditionOf(&sw.Condition) + warm(sw.Condition.Temp)
 			if _, ok := byKey[key]; !ok {
 				keys = append(keys, key)
 			}
@@ -82,8 +87,9 @@ func sittingsOf(s *report.Sheet) []sittingRun {
 			}
 			return cmp.Compare(a.sweep.ID, b.sweep.ID)
 		})
+		key, condition, _ := strings.Cut(key, sittingMark)
 		x := sessions[key] // the zero session where there is none
-		run := sittingRun{session: x, start: first(list[0].sweep.MeasuredAt, x.StartedAt)}
+		run := sittingRun{session: x, circuit: conditionOf(&list[0].sweep.Condition), condition: condition, start: first(list[0].sweep.MeasuredAt, x.StartedAt)}
 		run.occasion = first(day(run.start), x.Name, imported[list[0].sweep.SourceID], key)
 		run.name = key
 		if x.ID != "" {
@@ -120,10 +126,51 @@ func sessionWords(x record.Session, day string) string {
 	return first(strings.Join(words, ", "), x.Bench, x.ID)
 }
 
-// apart gives sittings of the same name a number.
+// sittingMark parts a session from the conditions in the key of a sitting.
+const sittingMark = "\x00"
+
+// warmth parts the temperatures of a lot where two neighbours lie more than half of
+// [warmer] apart, and gives each a word; none where all belong together or are not
+// known.
+func warmth(s *report.Sheet) func(record.Num) string {
+	var all []float64
+	counted(s, func(sw *report.Sweep) {
+		if t, ok := sw.Condition.Temp.Get(); ok {
+			all = append(all, t)
+		}
+	})
+	slices.Sort(all)
+	var starts []float64
+	for i, t := range all {
+		if i == 0 || t-all[i-1] > warmer/2 {
+			starts = append(starts, t)
+		}
+	}
+	return func(n record.Num) string {
+		t, ok := n.Get()
+		if !ok || len(starts) < 2 {
+			return ""
+		}
+		at := 0
+		for at+1 < len(starts) && starts[at+1] <= t {
+			at++
+		}
+		return fmt.Sprintf(", %.4g °C", starts[at])
+	}
+}
+
+// apart gives sittings of the same name their conditions, and where that does not
+// tell them apart a number.
 func apart(runs []sittingRun) {
+	names := map[string]int{}
+	for _, r := range runs {
+		names[r.name]++
+	}
 	seen := map[string]int{}
 	for i := range runs {
+		if names[runs[i].name] > 1 {
+			runs[i].name += ", " + runs[i].condition
+		}
 		name := runs[i].name
 		if seen[name]++; seen[name] > 1 {
 			runs[i].name += fmt.Sprintf(" (%d)", seen[name])
@@ -182,6 +229,27 @@ func tempOf(sw *report.Sweep, session record.Session) float64 {
 		return stats.Mean(read)
 	}
 	return session.Ambient.Float()
+}
+
+// mostly keeps the sittings in the circuit in which most was measured, and tells how
+// many insertions were left out: readings in another are no repetitions.
+func mostly(runs []sittingRun) (kept []sittingRun, left int) {
+	count := map[string]int{}
+	most := ""
+	for _, r := range runs {
+		count[r.circuit] += len(r.insertions)
+		if count[r.circuit] > count[most] {
+			most = r.circuit
+		}
+	}
+	for _, r := range runs {
+		if r.circuit == most {
+			kept = append(kept, r)
+		} else {
+			left += len(r.insertions)
+		}
+	}
+	return kept, left
 }
 
 // repeatedIn counts the insertions beyond the first of each device in each

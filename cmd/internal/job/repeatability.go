@@ -68,8 +68,9 @@ func ownRepeatability(runs []sittingRun) map[fit.Key]gauge.Repeatability {
 		return nil
 	}
 	known := map[fit.Key]gauge.Repeatability{}
+	like, _ := mostly(runs)
 	for _, key := range repeatedKeys {
-		if r := gauge.StudyOf(measurings(runs, key)).Repeatability; r.Enough() {
+		if r := gauge.StudyOf(measurings(like, key)).Repeatability; r.Enough() {
 			known[key] = r
 		}
 	}
