@@ -63,6 +63,7 @@ type driftDoc struct {
 	Low        number    `json:"low_V"`
 	High       number    `json:"high_V"`
 	Over       number    `json:"over_session_V"`
+	Rest       number    `json:"repeatability_without_V"`
 	P          number    `json:"p"`
 	PAdjusted  number    `json:"p_adjusted"`
 	Seen       bool      `json:"seen"`
@@ -193,7 +194,7 @@ func randomness(o gauge.Order) *bool {
 func driftDocOf(d *gauge.Drift) driftDoc {
 	doc := driftDoc{
 		Session: d.Sitting, Measurings: d.Measurings, Devices: d.Devices, By: "values in order", PerPlace: number(d.PerPlace.Value),
-		Low: number(d.PerPlace.Low), High: number(d.PerPlace.High), Over: number(d.Over), P: number(d.P), PAdjusted: number(d.PAdjusted), Seen: d.Seen(),
+		Low: number(d.PerPlace.Low), High: number(d.PerPlace.High), Over: number(d.Over), Rest: number(d.Rest), P: number(d.P), PAdjusted: number(d.PAdjusted), Seen: d.Seen(),
 	}
 	if d.Again {
 		doc.By = "devices put in again"
@@ -226,4 +227,14 @@ func historyDocOf(h *gauge.History) historyDoc {
 		doc.Devices = append(doc.Devices, movedDoc{c.Device, number(c.First), number(c.Last), number(c.Raw), number(c.Corrected), number(c.Own), c.Changed})
 	}
 	return doc
+}
+
+// heldMembers are the repeatability that u holds, for the object of another verb;
+// none where none is known.
+func heldMembers(s *Sheet, by fit.Key) []member {
+	r, ok := s.Repeatability[by]
+	if !ok {
+		return nil
+	}
+	return []member{{"repeatability", repeatabilityDocOf(r)}}
 }

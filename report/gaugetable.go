@@ -141,7 +141,11 @@ func gaugeMeaning(p *printer, g Gauge, style Style) {
 	st, say := &g.Study, func(format string, args ...any) { wrapped(p, "", "  ", fmt.Sprintf(format, args...), style.Width) }
 	r := st.Repeatability
 	if !r.Enough() {
-		say("Too few to tell, or nothing to see: no limit follows from this, and no u holds it.")
+		if r.Value > 0 {
+			say("Too few to tell: no limit follows from this, and no u holds it.")
+		} else {
+			say("The readings repeat to their last digit: how well the bench repeats is hidden by the step of its display.")
+		}
 		if g.Used.Value > 0 {
 			say("Used for what follows: %s (%s).", FormatTwoDigits(g.Used.Value, "V"), Clean(g.Used.Basis))
 		}
@@ -262,10 +266,14 @@ func gaugeCharts(p *printer, g Gauge, style Style) {
 		p.line("%s", style.paint(head, bold))
 		var at, when, value, moved, out []string
 		sc := ScaleOf("V", c.Centre)
-		step := (c.High - c.Low) / 60
+		var values []float64
+		for _, pt := range c.Points {
+			values = append(values, pt.Value)
+		}
+		step := readTo(values)
 		for i, pt := range c.Points {
 			at, when = append(at, itoa(i+1)), append(when, Clean(pt.Label))
-			value = append(value, sc.FormatNumber(pt.Value, step, 0))
+			value = append(value, sc.FormatNumber(pt.Value, math.NaN(), step))
 			r := ""
 			if i > 0 {
 				r = fixed(pt.Range*1e3, 1)
@@ -282,8 +290,8 @@ func gaugeCharts(p *printer, g Gauge, style Style) {
 			{head: "moved", unit: "mV", cells: moved, right: true}, {head: "", cells: out, rank: 1},
 		}})
 		if isNumber(c.Low) {
-			wrapped(p, "", "  ", fmt.Sprintf("Mean %s, limits %s to %s, of one step %s.", withUnit(sc.FormatNumber(c.Centre, step, 0), sc.Unit("V")),
-				sc.FormatNumber(c.Low, step, 0), withUnit(sc.FormatNumber(c.High, step, 0), sc.Unit("V")), FormatTwoDigits(c.RangeHigh, "V")), style.Width)
+			wrapped(p, "", "  ", fmt.Sprintf("Mean %s, limits %s to %s, of one step %s.", withUnit(sc.FormatNumber(c.Centre, math.NaN(), step), sc.Unit("V")),
+				sc.FormatNumber(c.Low, math.NaN(), step), withUnit(sc.FormatNumber(c.High, math.NaN(), step), sc.Unit("V")), FormatTwoDigits(c.RangeHigh, "V")), style.Width)
 		}
 		for _, t := range c.Texts {
 			wrapped(p, "", "  ", Clean(Sentence(t)), style.Width)

@@ -70,7 +70,7 @@ func DriftsOf(ms []Measuring, r Repeatability) []Drift {
 func (d *Drift) Seen() bool { return d.PAdjusted < 1-level }
 
 func driftIn(list []Measuring) Drift {
-	d := Drift{Measurings: len(list), PerPlace: noEstimate(), P: math.NaN(), PAdjusted: math.NaN(), Over: math.NaN()}
+	d := Drift{Measurings: len(list), PerPlace: noEstimate(), P: math.NaN(), PAdjusted: math.NaN(), Over: math.NaN(), Rest: math.NaN()}
 	byDevice := map[string][]Measuring{}
 	for _, m := range list {
 		byDevice[m.Device] = append(byDevice[m.Device], m)
@@ -119,7 +119,8 @@ func (d *Drift) within(list []Measuring, byDevice map[string][]Measuring) bool {
 		return false
 	}
 	slope := xy / xx
-	se := math.Sqrt(math.Max(0, yy-slope*xy) / df / xx)
+	d.Rest = math.Sqrt(math.Max(0, yy-slope*xy) / df)
+	se := d.Rest / math.Sqrt(xx)
 	t := stats.UpperT((1-level)/2, df)
 	d.Again = true
 	d.PerPlace = Estimate{Value: slope, Low: slope - t*se, High: slope + t*se, DF: df}
@@ -168,7 +169,7 @@ func (d *Drift) say() {
 	switch {
 	case math.IsNaN(d.P):
 	case d.Seen() && d.Again:
-		d.Text = fmt.Sprintf("the same devices read %s from the first place to the last (p %s): the bench drifts", signed(d.Over), pWords(d.PAdjusted))
+		d.Text = fmt.Sprintf("the same devices read %s from the first place to the last (p %s): the bench drifts; without that a device put in again reads the same to %s", signed(d.Over), pWords(d.PAdjusted), volts(d.Rest))
 	case d.Seen():
 		d.Text = fmt.Sprintf("the values move by %s along the order (p %s): the bench drifts, or the parts lay in that order; put some in again to tell", signed(d.Over), pWords(d.PAdjusted))
 	case !d.Again:

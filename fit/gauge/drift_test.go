@@ -26,6 +26,7 @@ func TestDriftByHand(t *testing.T) {
 	}
 	near(t, "slope", d[0].PerPlace.Value, 2e-3, 1e-12)
 	near(t, "over the session", d[0].Over, 14e-3, 1e-12)
+	near(t, "without the drift", d[0].Rest, 0, 1e-9)
 	if !d[0].Seen() {
 		t.Errorf("not seen: p %v", d[0].P)
 	}

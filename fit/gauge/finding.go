@@ -3,6 +3,7 @@ package gauge
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"gatesill/fit"
@@ -19,7 +20,11 @@ func FindingOf(ms []Measuring, known Repeatability, tempco float64) Finding {
 	}
 	f.Drifts = DriftsOf(ms, known)
 	f.Charts = ChartsOf(ms, tempco)
-	f.History = HistoryOf(ms, HistoryOptions{Tempco: tempco, Known: known})
+	for _, h := range HistoryOf(ms, HistoryOptions{Tempco: tempco, Known: known}) {
+		if slices.ContainsFunc(h.Changes, func(c Change) bool { return !c.Control }) { // the chart tells of others
+			f.History = append(f.History, h)
+		}
+	}
 	f.Warnings = f.Study.Warnings
 	for i := range f.Drifts {
 		d := &f.Drifts[i]

@@ -82,7 +82,7 @@ func HistoryOf(ms []Measuring, o HistoryOptions) []History {
 			order = append(order, p)
 		}
 		c, weight := changeOf(list, p.from, p.to, h, o.Tempco)
-		c.Device = n
+		c.Device, c.Control = n, list[0].Control
 		h.Changes = append(h.Changes, c)
 		weights[p] = append(weights[p], weight)
 	}

@@ -115,6 +115,7 @@ type Drift struct {
 	Again      bool     // by devices put in again; otherwise by the values in their order
 	PerPlace   Estimate // V per place in the order
 	Over       float64  // V, over the whole sitting
+	Rest       float64  // V, repeatability with the drift taken out; NaN unless Again
 	P          float64  // of no drift
 	PAdjusted  float64  // corrected for the number of sittings
 	Text       string   // one sentence
@@ -182,6 +183,7 @@ type Occasion struct {
 // Change is what became of one device.
 type Change struct {
 	Device      string
+	Control     bool    // a part kept for checking the bench
 	First, Last float64 // V, mean of its insertions
 	Raw         float64 // V, last less first
 	Corrected   float64 // V, less what the temperature explains; NaN: not known
