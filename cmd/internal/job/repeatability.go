@@ -79,7 +79,7 @@ func ownRepeatability(runs []sittingRun) map[fit.Key]gauge.Repeatability {
 
 // repeatabilityElsewhere looks for a study of the same part on the same bench: all
 // sweeps of this lot and those of the study must name one and the same bench. The
-// largest study counts. Only lots with enough insertions are read and fitted.
+// largest study counts. Only lots with enough measured again are read and fitted.
 func repeatabilityElsewhere(ctx context.Context, db *store.DB, s *report.Sheet, method string) (map[fit.Key]gauge.Repeatability, error) {
 	bench := benchOf(s)
 	if bench == "" {
@@ -88,15 +88,16 @@ func repeatabilityElsewhere(ctx context.Context, db *store.DB, s *report.Sheet, 
 	var best map[fit.Key]gauge.Repeatability
 	most := 0.0
 	err := db.View(ctx, func(tx *store.Tx) error {
-		names, err := tx.LotsOfPart(s.Part.ID)
+		lots, err := tx.RepeatsOn(s.Part.ID, bench)
 		if err != nil {
 			return err
 		}
-		for _, name := range names {
-			if name == s.Lot.Name {
+		for _, l := range lots {
+			// No lot has more degrees of freedom than times.
+			if l.Lot == s.Lot.Name || l.Times < gauge.FewestDF || float64(l.Times) <= most {
 				continue
 			}
-			known, err := studyOnBench(ctx, tx, s, name, bench, method)
+			known, err := studyOnBench(ctx, tx, s, l.Lot, bench, method)
 			if err != nil {
 				return err
 			}
@@ -114,29 +115,6 @@ func repeatabilityElsewhere(ctx context.Context, db *store.DB, s *report.Sheet, 
 // studyOnBench is the repeatability of one other lot, at the currents of s, from
 // its sweeps on one bench.
 func studyOnBench(ctx context.Context, tx *store.Tx, s *report.Sheet, name, bench, method string) (map[fit.Key]gauge.Repeatability, error) {
-	lot, err := tx.Lot(name)
-	if err != nil {
-		return nil, err
-	}
-	sessions, err := tx.Sessions(lot.ID)
-	if err != nil || !slices.ContainsFunc(sessions, func(x record.Session) bool { return x.Bench == bench }) {
-		return nil, err
-	}
-	// Counted without the data first: most lots have no study.
-	light, err := tx.Sweeps(lot.ID, false)
-	if err != nil {
-		return nil, err
-	}
-	seen, again := map[string]bool{}, 0
-	for i := range light {
-		if seen[light[i].DeviceID] {
-			again++
-		}
-		seen[light[i].DeviceID] = true
-	}
-	if again < gauge.FewestDF {
-		return nil, nil
-	}
 	other, sweeps, err := load(tx, name)
 	if err != nil {
 		return nil, err
