@@ -8,6 +8,7 @@ package report
 import (
 	"gatesill/fit"
 	"gatesill/fit/compare"
+	"gatesill/fit/gauge"
 	"gatesill/fit/lot"
 	"gatesill/store/record"
 )
@@ -26,8 +27,12 @@ type Sheet struct {
 	TestBasis   string  // where it came from: "part", "--at", "spot list", "default"
 	IdleCurrent float64 // A; NaN: the part has none
 
-	Shape  *fit.LotShape // of the lot's curves, which devices with too few points were read along; nil: none
-	Budget bool          // the results hold how their uncertainties come about, and that is shown
+	Shape *fit.LotShape // of the lot's curves, which devices with too few points were read along; nil: none
+	// Repeatability of the bench by quantity, which no u of a device is below; nil: not
+	// known. It is that of this lot or of another of the part on the same bench.
+	Repeatability map[fit.Key]gauge.Repeatability
+
+	Budget bool // the results hold how their uncertainties come about, and that is shown
 
 	Spread lot.Spread
 	Spec   *lot.Specification // nil: the part has no limits

@@ -71,6 +71,9 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	if err := fitSheet(ctx, &s, o.Method, digits); err != nil {
 		return s, err
 	}
+	if err := takeRepeatability(ctx, db, &s, o.Method); err != nil {
+		return s, storeFailure(err)
+	}
 	e.detail("%s of %s fitted in %v", count(len(sweeps), "sweep"), count(len(s.Devices), "device"), time.Since(start).Round(time.Millisecond))
 	// Only now: a device is fitted the same whether it is asked for alone or not.
 	if only != nil {
