@@ -53,6 +53,7 @@ const (
 	CodeOffNotRead         = "off-not-read"    // no reading at the off voltage
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
+	CodePartNotNamed       = "part-not-named"   // lots compared of which one has no part of a name
 	CodeLotShape           = "lot-shape"        // read along the lot's median curve
 	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
 	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
@@ -205,6 +206,9 @@ var Codes = []CodeInfo{
 	{CodeUnlikeConditions,
 		"The values were taken under unlike conditions.",
 		"Compare only values of the same circuit, current, temperature and definition."},
+	{CodePartNotNamed,
+		"No part is named for a lot that is compared, so that it is not known whether both are of one part.",
+		"Name it with gatesill lot edit LOT --part NAME."},
 	{CodeLotShape,
 		"The device has too few points of its own there, and was read along the median shape of the lot's curves.",
 		"Take more points around the current asked for; do not trust the value to show another die."},
