@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"io"
 	"math"
-	"slices"
 	"strconv"
 	"strings"
 
@@ -39,7 +38,7 @@ func (c *ComparedLots) quantity() fit.Key {
 }
 
 // labels of the facts of a comparison take this many columns.
-const labelWidth = 15
+const labelWidth = 16
 
 // fact writes one labelled line; nothing where there are no words.
 func fact(p *printer, label, words string, style Style) {
@@ -71,7 +70,7 @@ func comparedLot(p *printer, s *Sheet, style Style) {
 	if m := c.MarginWords(); m != "" {
 		fact(p, "margin", m, style)
 	}
-	if isNumber(c.NotExcluded) && c.Verdict != compare.Differs {
+	if isNumber(c.NotExcluded) && (c.Verdict == compare.NoDifference || c.Verdict == compare.TooFew) {
 		fact(p, "not excluded", "shifts up to "+FormatTwoDigits(c.NotExcluded, "V"), style)
 	}
 	if c.More > 0 || c.MoreText != "" {
@@ -198,14 +197,10 @@ func gainFact(g *compare.Gain) string {
 	return fmt.Sprintf("%s %s, p = %s (n = %d and %d)", KeyOf(g.Key).Name, ShiftWords(g.Percent.Value, g.Percent.Low, g.Percent.High, "%"), ProbabilityWords(g.P), g.N[0], g.N[1])
 }
 
-// countsGrid shows what the devices of both lots are to the comparison.
+// countsGrid shows centre, spread and counts of both lots.
 func countsGrid(s *Sheet, style Style) grid {
 	c := s.Compared
-	names := []string{Clean(c.Reference.Lot.Name), Clean(s.Lot.Name)}
-	roles := []string{"reference", "compared"}
-	num := func(f func(compare.Counts) int) []string {
-		return []string{strconv.Itoa(f(c.Counts[0])), strconv.Itoa(f(c.Counts[1]))}
-	}
+	names := []string{Clean(c.Reference.Lot.Name) + " (reference)", Clean(s.Lot.Name)}
 	ses := make([]float64, 2)
 	for i := range ses {
 		ses[i] = c.SD[i] / math.Sqrt(float64(c.Counts[i].WithValue))
@@ -214,20 +209,30 @@ func countsGrid(s *Sheet, style Style) grid {
 	sc := ScaleOf("V", c.SD[:]...)
 	sds := make([]string, 2)
 	for i, sd := range c.SD {
-		sds[i] = sc.FormatNumber(sd, ses[i]/1.4, 0) // of a standard deviation: sd/√(2n)
+		sds[i] = sc.FormatNumber(sd, ses[i]/math.Sqrt2, 0) // that of a standard deviation: sd/√(2n)
 	}
 	g := grid{style: style, cols: []column{
-		{head: "lot", cells: names, wrap: 20}, {head: "", cells: roles},
-		{head: "devices", cells: num(func(k compare.Counts) int { return k.N }), right: true},
-		{head: "with value", cells: num(func(k compare.Counts) int { return k.WithValue }), right: true},
-		{head: "above", cells: num(func(k compare.Counts) int { return k.Above }), right: true, rank: 2},
-		{head: "flagged", cells: num(func(k compare.Counts) int { return k.Flagged }), right: true, rank: 1},
-		{head: "set aside", cells: num(func(k compare.Counts) int { return k.Aside }), right: true, rank: 1},
-		{head: "centre", unit: unit, cells: centre},
-		{head: "sd", unit: sc.Unit("V"), cells: sds, right: true},
+		{head: "lot", cells: names, wrap: 20}, {head: "centre", unit: unit, cells: centre}, {head: "sd", unit: sc.Unit("V"), cells: sds, right: true},
 	}}
-	if c.Counts[0].Control+c.Counts[1].Control > 0 {
-		g.cols = slices.Insert(g.cols, 7, column{head: "control", cells: num(func(k compare.Counts) int { return k.Control }), right: true, rank: 2})
+	valued, besides := make([]string, 2), make([]string, 2)
+	for i, k := range c.Counts {
+		valued[i] = fmt.Sprintf("%d of %d", k.WithValue, k.N)
+		var words []string
+		for _, b := range []struct {
+			n    int
+			what string
+		}{
+			{k.Above, "above"}, {k.Without, "without a value"}, {k.Flagged, "flagged"}, {k.Aside, "set aside"}, {k.Control, "control"},
+		} {
+			if b.n > 0 {
+				words = append(words, fmt.Sprintf("%d %s", b.n, b.what))
+			}
+		}
+		besides[i] = strings.Join(words, ", ")
+	}
+	g.cols = append(g.cols, column{head: "with value", cells: valued, right: true})
+	if besides[0]+besides[1] != "" {
+		g.cols = append(g.cols, column{head: "besides", cells: besides, wrap: 12})
 	}
 	return g
 }
@@ -256,24 +261,16 @@ func bandGrid(b *compare.Band, style Style) grid {
 		head = fmt.Sprintf("%s band of all %d currents", LevelWords(b.Level), n)
 	}
 	return grid{style: style, cols: []column{
-		{head: "  at", cells: indented(currents)}, {head: "shift", unit: sc.Unit("V"), cells: shifts, right: true},
+		{head: "at", cells: currents}, {head: "shift", unit: sc.Unit("V"), cells: shifts, right: true},
 		{head: head, unit: sc.Unit("V"), cells: bands, right: true},
 		{head: "n reference", cells: refs, right: true, rank: 1}, {head: "n compared", cells: news, right: true, rank: 1},
 	}}
 }
 
-func indented(cells []string) []string {
-	out := make([]string, len(cells))
-	for i, c := range cells {
-		out[i] = "  " + c
-	}
-	return out
-}
-
 func secondaryGrid(list []compare.Secondary, style Style) grid {
 	var tests, stats, ps, adjusted []string
 	for _, t := range list {
-		tests = append(tests, "  "+Clean(t.Test))
+		tests = append(tests, Clean(t.Test))
 		stat := ""
 		if isNumber(t.Statistic) {
 			stat = strconv.FormatFloat(roundTo(t.Statistic, 3), 'g', -1, 64)
@@ -282,7 +279,7 @@ func secondaryGrid(list []compare.Secondary, style Style) grid {
 		ps, adjusted = append(ps, ProbabilityWords(t.P)), append(adjusted, ProbabilityWords(t.PAdjusted))
 	}
 	return grid{style: style, cols: []column{
-		{head: "  test", cells: tests, wrap: 40}, {head: "statistic", cells: stats, right: true, rank: 1},
+		{head: "test", cells: tests, wrap: 40}, {head: "statistic", cells: stats, right: true, rank: 1},
 		{head: "p", cells: ps, right: true}, {head: "adjusted", cells: adjusted, right: true},
 	}}
 }

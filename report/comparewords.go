@@ -13,9 +13,9 @@ import (
 // standard error, and the unit with its prefix.
 func ShiftTexts(value, low, high float64, unit string) (v, l, h, scaled string) {
 	u := (high - low) / 4
-	size := math.Abs(value)
-	if !isNumber(size) || u > size {
-		size = u
+	size := max(math.Abs(low), math.Abs(high))
+	if !isNumber(size) {
+		size = math.Abs(value)
 	}
 	sc := ScaleOf(unit, size)
 	sign := func(x float64) string { return signed(sc.FormatNumber(x, u, 0)) }
@@ -82,7 +82,7 @@ func (c *ComparedLots) ComparedLine() string {
 	if from := c.Reference.currentFrom(c.quantity()); from != "" {
 		text += " (" + from + ")"
 	}
-	return text + ", shift = lot - reference lot " + Clean(c.Reference.Lot.Name) + "."
+	return text + "; a shift is that of the lot minus that of reference lot " + Clean(c.Reference.Lot.Name) + "."
 }
 
 // MarginWords tells the margin and where it comes from; "" without one.

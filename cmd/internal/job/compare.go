@@ -185,7 +185,15 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 				"lot %q: no device has a value of %s", s.Lot.Name, ref.KeyPhrase(by))
 		}
 	}
-	differ, doubts := unlikeLots(ref, cand, by, rq.Tempco)
+	if rq.Tempco.IsKnown() {
+		for _, s := range []*report.Sheet{ref, cand} {
+			if math.IsNaN(lotTemperature(s)) {
+				return out, failed("gatesill import "+Quote(s.Lot.Name)+" FILE --temp 25C --again says it, or leave out --tempco",
+					"--tempco: the temperature of lot %q is not known, so that there is nothing to take off", s.Lot.Name)
+			}
+		}
+	}
+	differ, doubts := unlikeLots(ref, cand, by, rq.Tempco.IsKnown())
 	if differ != nil {
 		return out, differ.failure(ref, cand)
 	}

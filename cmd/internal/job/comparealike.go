@@ -24,9 +24,9 @@ type differences []difference
 func (ds differences) failure(ref, cand *report.Sheet) error {
 	var words []string
 	for _, d := range ds {
-		words = append(words, fmt.Sprintf("%s %s there, %s here", d.what, d.ref, d.cand))
+		words = append(words, fmt.Sprintf("%s %s against %s", d.what, d.ref, d.cand))
 	}
-	return failed(ds[0].hint, "lot %q was not measured as lot %q was: %s; a shift would be the bench's as well", cand.Lot.Name, ref.Lot.Name, strings.Join(words, "; "))
+	return failed(ds[0].hint, "lots %q and %q were not measured alike: %s; a shift would be the bench's as well", ref.Lot.Name, cand.Lot.Name, strings.Join(words, "; "))
 }
 
 // otherDrain is the share by which drain voltages may differ. With a drain current
@@ -44,7 +44,7 @@ const apart = 0.5 // K
 // gate voltage at one current, read from both lots by the same fit. Warnings tell
 // what is not known, and other meter ranges: their offsets and gains differ within
 // the accuracy statements, which the common error of the lots holds.
-func unlikeLots(ref, cand *report.Sheet, by fit.Key, tempco record.Num) (out differences, warnings []fit.Warning) {
+func unlikeLots(ref, cand *report.Sheet, by fit.Key, corrected bool) (out differences, warnings []fit.Warning) {
 	r, c := seenOf(ref, by), seenOf(cand, by)
 	warn := func(code, format string, args ...any) {
 		warnings = append(warnings, fit.Warning{Code: code, Text: fmt.Sprintf(format, args...)})
@@ -99,16 +99,10 @@ func unlikeLots(ref, cand *report.Sheet, by fit.Key, tempco record.Num) (out dif
 		if math.IsNaN(c.temp) {
 			name = cand.Lot.Name
 		}
-		if tempco.IsKnown() {
-			out = append(out, difference{"temperature", degrees(r.temp), degrees(c.temp), "gatesill import " + Quote(name) + " FILE --temp 25C --again says it, or leave out --tempco"})
-		} else {
-			warn(fit.CodeUnlikeConditions, "the temperature of lot %s is not known, so that what it shifts is not known either", name)
-		}
-	case math.IsNaN(d) && tempco.IsKnown():
-		out = append(out, difference{"temperature", degrees(r.temp), degrees(c.temp), "leave out --tempco, or import the lots again with --temp"})
-	case math.Abs(d) > warmer && !tempco.IsKnown():
+		warn(fit.CodeUnlikeConditions, "the temperature of lot %s is not known, so that what it shifts is not known either", name)
+	case math.Abs(d) > warmer && !corrected:
 		out = append(out, difference{"temperature", degrees(r.temp), degrees(c.temp), "--tempco -4mV/K takes a slope that you know off the shift"})
-	case math.Abs(d) > apart && !tempco.IsKnown():
+	case math.Abs(d) > apart && !corrected:
 		warn(fit.CodeUnlikeConditions, "lot %s was %.2g K %s: with the usual -2 to -5 mV/K that alone shifts it by %.1g to %.2g mV; --tempco takes it off",
 			cand.Lot.Name, math.Abs(d), map[bool]string{true: "warmer", false: "colder"}[d > 0], 2*math.Abs(d), 5*math.Abs(d))
 	}
