@@ -232,7 +232,7 @@ func countsGrid(s *Sheet, style Style) grid {
 	}
 	g.cols = append(g.cols, column{head: "with value", cells: valued, right: true})
 	if besides[0]+besides[1] != "" {
-		g.cols = append(g.cols, column{head: "besides", cells: besides, wrap: 12})
+		g.cols = append(g.cols, column{head: "besides", cells: besides, wrap: 9})
 	}
 	return g
 }
