@@ -180,9 +180,8 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	for _, s := range []*report.Sheet{ref, cand} {
-		if !hasAny(s, by) && !someAbove(s) {
-			return out, failed("gatesill fit "+Quote(s.Lot.Name)+" shows what there is; --at CURRENT compares at another current",
-				"lot %q: no device has a value of %s", s.Lot.Name, ref.KeyPhrase(by))
+		if !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded && len(d.Sweeps) > 0 }) {
+			return out, failed("gatesill import "+Quote(s.Lot.Name)+" FILE", "lot %q: nothing is measured of it", s.Lot.Name)
 		}
 	}
 	if rq.Tempco.IsKnown() {
@@ -196,6 +195,12 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 	differ, doubts := unlikeLots(ref, cand, by, rq.Tempco.IsKnown())
 	if differ != nil {
 		return out, differ.failure(ref, cand)
+	}
+	for _, s := range []*report.Sheet{ref, cand} {
+		if !hasAny(s, by) && !someAbove(s) {
+			return out, failed("gatesill fit "+Quote(s.Lot.Name)+" shows what there is; --at CURRENT compares at another current",
+				"lot %q: no device has a value of %s", s.Lot.Name, ref.KeyPhrase(by))
+		}
 	}
 	warnings = append(warnings, doubts...)
 	opt := optionsOf(ref, by, rq)

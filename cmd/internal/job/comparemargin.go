@@ -42,9 +42,11 @@ func marginOf(ref, cand *report.Sheet, rq CompareRequest) (margin, error) {
 		return m, err
 	}
 	m.volts, m.set = volts, compare.After
-	m.text = how
+	if how != "" {
+		how += ", "
+	}
 	if from == nil {
-		m.text += ", given with --margin"
+		m.text = how + "given with --margin"
 		return m, nil
 	}
 	at, of := firstReading(cand)
@@ -52,7 +54,7 @@ func marginOf(ref, cand *report.Sheet, rq CompareRequest) (margin, error) {
 	if from.MarginSetAt != "" && from.MarginSetAt < at {
 		m.set, when = compare.Before, "before"
 	}
-	m.text += fmt.Sprintf(", stored with lot %s on %s, %s the %s of lot %s", from.Name, day(from.MarginSetAt), when, of, cand.Lot.Name)
+	m.text = how + fmt.Sprintf("stored with lot %s on %s, %s the %s of lot %s", from.Name, day(from.MarginSetAt), when, of, cand.Lot.Name)
 	if d := day(at); d != "" {
 		m.text += " on " + d
 	}
@@ -65,7 +67,7 @@ func marginOf(ref, cand *report.Sheet, rq CompareRequest) (margin, error) {
 func inVolts(ref *report.Sheet, a record.Amount, beta record.Num, stored bool) (volts float64, how string, err error) {
 	given := report.AmountWords(a)
 	if a.Unit == "V" {
-		return a.Value, given, nil
+		return a.Value, "", nil
 	}
 	idle := ref.IdleCurrent
 	refuse := func(hint, format string, args ...any) error {
@@ -83,9 +85,9 @@ func inVolts(ref *report.Sheet, a record.Amount, beta record.Num, stored bool) (
 	if a.Unit == "%" {
 		current = a.Value / 100 * idle
 	}
-	gm, basis := medianGm(ref), "median g_m of lot "+ref.Lot.Name+" at the idle current"
+	gm, basis := medianGm(ref), "median of lot "+ref.Lot.Name
 	if b, ok := beta.Get(); math.IsNaN(gm) && ok {
-		gm, basis = math.Sqrt(2*b*idle), fmt.Sprintf("g_m = √(2·beta·I) with beta = %s", report.FormatGiven(b, "A/V²"))
+		gm, basis = math.Sqrt(2*b*idle), fmt.Sprintf("√(2·beta·I), beta %s", report.FormatGiven(b, "A/V²"))
 	}
 	if math.IsNaN(gm) {
 		return 0, "", refuse("--beta 3.8 gives the gain factor in A/V², or give a margin in volts",
@@ -96,7 +98,7 @@ func inVolts(ref *report.Sheet, a record.Amount, beta record.Num, stored bool) (
 	if a.Unit == "%" {
 		what = fmt.Sprintf("%s of %s = %s", given, report.FormatGiven(idle, "A"), report.FormatGiven(current, "A"))
 	}
-	return volts, fmt.Sprintf("%s over %s (%s) is %s", what, report.FormatTwoDigits(gm, "S"), basis, report.FormatTwoDigits(volts, "V")), nil
+	return volts, fmt.Sprintf("%s over a g_m of %s at the idle current (%s) is %s", what, report.FormatTwoDigits(gm, "S"), basis, report.FormatTwoDigits(volts, "V")), nil
 }
 
 // medianGm is the median transconductance of a lot at its idle current, S; NaN
