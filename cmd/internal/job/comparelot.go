@@ -103,21 +103,22 @@ const (
 // date: as its sweeps say, else when their session began, else when their file was
 // imported. Set-aside sweeps count: their values have been seen.
 func firstReading(s *report.Sheet) (at, from string) {
+	started, imported := map[string]string{}, map[string]string{}
+	for _, x := range s.Sessions {
+		started[x.ID] = x.StartedAt
+	}
+	for _, x := range s.Sources {
+		imported[x.ID] = x.ImportedAt
+	}
 	for i := range s.Devices {
 		for j := range s.Devices[i].Sweeps {
 			sw := &s.Devices[i].Sweeps[j]
 			t, f := sw.MeasuredAt, fromReading
 			if t == "" {
-				f = fromSession
-				if k := slices.IndexFunc(s.Sessions, func(x record.Session) bool { return x.ID == sw.SessionID }); k >= 0 {
-					t = s.Sessions[k].StartedAt
-				}
+				t, f = started[sw.SessionID], fromSession
 			}
 			if t == "" {
-				f = fromImport
-				if k := slices.IndexFunc(s.Sources, func(x record.Source) bool { return x.ID == sw.SourceID }); k >= 0 {
-					t = s.Sources[k].ImportedAt
-				}
+				t, f = imported[sw.SourceID], fromImport
 			}
 			if t != "" && (at == "" || t < at) { // a bare date sorts before every stamp of its day
 				at, from = t, f
