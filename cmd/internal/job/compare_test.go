@@ -8,6 +8,7 @@ import (
 
 	"gatesill/fit"
 	"gatesill/fit/compare"
+	"gatesill/fit/lot"
 	"gatesill/report"
 	"gatesill/store/record"
 )
@@ -130,7 +131,7 @@ func TestLimitsHoldAtTheTestCurrent(t *testing.T) {
 
 // What makes two lots unlike, and what is only told.
 func TestUnlikeLots(t *testing.T) {
-	lot := func(name string, change func(*record.Condition)) *report.Sheet {
+	with := func(name string, change func(*record.Condition)) *report.Sheet {
 		s := sheetAt(name, "")
 		c := &s.Devices[0].Sweeps[0].Condition
 		c.Circuit, c.RL, c.VDD = record.Load, record.Known(10), record.Known(12)
@@ -141,7 +142,7 @@ func TestUnlikeLots(t *testing.T) {
 	}
 	check := func(what string, corrected bool, a, b func(*record.Condition)) {
 		t.Helper()
-		differ, _ := unlikeLots(lot("A", a), lot("B", b), fit.KeyVgsth, corrected)
+		differ, _ := unlikeLots(with("A", a), with("B", b), fit.KeyVgsth, corrected)
 		if what == "" {
 			require.Empty(t, differ)
 			return
@@ -170,9 +171,9 @@ func TestUnlikeLots(t *testing.T) {
 	check("", false, temp(25), nil)
 
 	// The drain falls with the current: at 250 mA, 10 ohm leave 9.5 V of 12 V and 22 ohm 6.5 V.
-	differ, _ := unlikeLots(lot("A", nil), lot("B", func(c *record.Condition) { c.RL = record.Known(22) }), fit.KeyVgsIdle, false)
+	differ, _ := unlikeLots(with("A", nil), with("B", func(c *record.Condition) { c.RL = record.Known(22) }), fit.KeyVgsIdle, false)
 	require.Len(t, differ, 1)
-	differ, _ = unlikeLots(lot("A", nil), lot("B", func(c *record.Condition) { c.RL = record.Known(22) }), fit.KeyVgsth, false)
+	differ, _ = unlikeLots(with("A", nil), with("B", func(c *record.Condition) { c.RL = record.Known(22) }), fit.KeyVgsth, false)
 	require.Empty(t, differ)
 
 	codes := func(a, b *report.Sheet) (out []string) {
@@ -182,10 +183,42 @@ func TestUnlikeLots(t *testing.T) {
 		}
 		return out
 	}
-	require.Equal(t, []string{fit.CodeUnlikeConditions}, codes(lot("A", kind("pulsed")), lot("B", nil)))
-	require.Equal(t, []string{fit.CodeUnlikeConditions}, codes(lot("A", temp(25)), lot("B", temp(27))))
-	require.Empty(t, codes(lot("A", temp(25)), lot("B", temp(25.4))))
-	a, b := lot("A", nil), lot("B", nil)
+	require.Equal(t, []string{fit.CodeUnlikeConditions}, codes(with("A", kind("pulsed")), with("B", nil)))
+	require.Equal(t, []string{fit.CodeUnlikeConditions}, codes(with("A", temp(25)), with("B", temp(27))))
+	require.Empty(t, codes(with("A", temp(25)), with("B", temp(25.4))))
+	a, b := with("A", nil), with("B", nil)
 	a.Devices[0].Sweeps[0].Result.ReadTest.Gate.Top, b.Devices[0].Sweeps[0].Result.ReadTest.Gate.Top = 4, 40
 	require.Equal(t, []string{fit.CodeRangeEdge}, codes(a, b))
+}
+
+// Flagged devices take part, all of them if need be; dead and excluded ones are set
+// aside with the reason, and a device without a sweep is in no count.
+func TestWhoTakesPart(t *testing.T) {
+	s := sheetAt("A", "2026-05-20")
+	d := s.Devices[0]
+	d.Result.State = fit.Measured
+	s.Devices = nil
+	for _, change := range []func(*report.Device){
+		func(*report.Device) {},
+		func(d *report.Device) { d.Result.State = fit.Shorted },
+		func(d *report.Device) { d.Excluded = true },
+		func(d *report.Device) { d.Role = record.Control },
+		func(d *report.Device) { d.Result.State = fit.Above },
+		func(d *report.Device) { d.Sweeps = nil },
+	} {
+		x := d
+		x.Name = string(rune('a' + len(s.Devices)))
+		change(&x)
+		s.Devices = append(s.Devices, x)
+		s.Spread.Devices = append(s.Spread.Devices, lot.Verdict{Name: x.Name, Flagged: true})
+	}
+	l := comparedLot(s)
+	var aside []string
+	for _, m := range l.Members {
+		require.True(t, m.Flagged)
+		aside = append(aside, m.Aside)
+	}
+	require.Equal(t, []string{"", "shorted", "excluded", "", ""}, aside)
+	require.True(t, l.Members[3].Control)
+	require.Equal(t, "2026-05-20", l.At)
 }
