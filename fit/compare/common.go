@@ -157,6 +157,7 @@ func (c *comparing) commonOf(ref, cand []*Member) (Common, float64) {
 		return out, nu
 	}
 	if t := c.ties(); t.n > 0 {
+		c.tied = t
 		out.Controls, out.Offset, out.OffsetU = t.n, t.offset, t.u
 		out.U, out.Basis = t.u, "control parts"
 		if math.IsNaN(t.u) {

@@ -70,6 +70,7 @@ type comparing struct {
 	least     float64 // spread below which nothing is told apart
 	pairs     *pairs  // nil: not by serial
 	shift     estimate
+	tied      ties
 	whyNot    string // there is no shift to be had: one sentence
 	out       Comparison
 }

@@ -113,6 +113,9 @@ func cut(n int) int { return int(trim*float64(n) + 1e-9) }
 // least is the spread below which readings of both lots tell nothing: that of a
 // step of the display, or their own uncertainty.
 func least(a, b *values) float64 {
-	all := stats.Sorted(append(slices.Clone(a.plain), b.plain...))
-	return math.Max(lot.StepOf(all)/math.Sqrt(12), math.Max(a.usual, b.usual))
+	return math.Max(stepSpread(append(slices.Clone(a.plain), b.plain...)), math.Max(a.usual, b.usual))
 }
+
+// stepSpread is the standard deviation of readings within one step of the display
+// that was found from them, in any order; 0: no step was found.
+func stepSpread(x []float64) float64 { return lot.StepOf(stats.Sorted(x)) / math.Sqrt(12) }
