@@ -53,10 +53,11 @@ const (
 	CodeOffNotRead         = "off-not-read"    // no reading at the off voltage
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
-	CodePartNotNamed       = "part-not-named"   // lots compared of which one has no part of a name
-	CodeLotShape           = "lot-shape"        // read along the lot's median curve
-	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
-	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
+	CodePartNotNamed       = "part-not-named"       // lots compared of which one has no part of a name
+	CodeLotShape           = "lot-shape"            // read along the lot's median curve
+	CodeMethodNotValid     = "method-not-valid"     // no value by the method asked for
+	CodeOutsideLimits      = "outside-limits"       // outside the data sheet's limits
+	CodeCommonUnknown      = "common-error-unknown" // what the bench adds to the difference of two lots
 
 	// States of a device that stand as a warning in what programs read.
 	CodeExcluded    = "excluded"
@@ -218,6 +219,9 @@ var Codes = []CodeInfo{
 	{CodeOutsideLimits,
 		"The threshold lies outside the limits of the data sheet.",
 		"Check that test current and circuit are those of the data sheet, measure again, and apply your own rule for such devices."},
+	{CodeCommonUnknown,
+		"Lots were compared that were not measured in one session with the same meters, and what that adds to their difference is not known.",
+		"Give the meters' accuracy in a bench file, measure some control parts with both lots, or measure both in one session."},
 	{CodeExcluded,
 		"The device was left out of every statistic by hand.",
 		"See why with gatesill device show; gatesill device include lets it count again."},

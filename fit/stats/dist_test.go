@@ -127,7 +127,7 @@ func TestUpperTRoundTrip(t *testing.T) {
 			// What a last place of x moves p by, and no more.
 			allowed := 1e-12 * (1 + x*x/(1+x*x/df)/100)
 			if p > 0.4 {
-				got, p = 0.5-tWithin(x, df), p+0
+				got = 0.5 - tWithin(x, df)
 				relative(t, fmt.Sprint(p, df), tWithin(x, df), 0.5-p, 1e-10)
 			}
 			worst = math.Max(worst, math.Abs(got/p-1))
