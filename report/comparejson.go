@@ -63,11 +63,12 @@ type commonDoc struct {
 }
 
 type pairedDoc struct {
-	Pairs         int      `json:"pairs"`
-	Why           optional `json:"why"`
-	SD            number   `json:"sd_V"`
-	OnlyReference []string `json:"only_reference"`
-	OnlyCandidate []string `json:"only_candidate"`
+	Pairs         int         `json:"pairs"`
+	Why           optional    `json:"why"`
+	SD            number      `json:"sd_V"`
+	Own           intervalDoc `json:"own_shift_V"`
+	OnlyReference []string    `json:"only_reference"`
+	OnlyCandidate []string    `json:"only_candidate"`
 }
 
 type bandPointDoc struct {
@@ -133,7 +134,7 @@ func compareMembers(s *Sheet) []member {
 		{"counts", map[string]countsDoc{"reference": counts(c.Counts[0]), "candidate": counts(c.Counts[1])}},
 		{"options", options},
 
-		{"sentence", c.Sentence}, {"p", number(c.P)}, {"df", number(c.DF)}, {"raw_shift_V", number(c.Raw)}, {"margin_from", optional(c.MarginFrom)}, {"more_parts_why", optional(c.MoreText)},
+		{"sentence", c.Sentence}, {"p", number(c.P)}, {"df", number(c.DF)}, {"raw_shift_V", number(c.Raw)}, {"taken_off_for_temperature_V", number(c.ForTemp)}, {"margin_from", optional(c.MarginFrom)}, {"more_parts_why", optional(c.MoreText)},
 		{"centre_V", pairDoc{number(c.Centre[0]), number(c.Centre[1])}}, {"sd_V", pairDoc{number(c.SD[0]), number(c.SD[1])}}, {"spread_test", optional(c.SpreadTest)},
 		{"common_error", commonDoc{number(c.Common.U), optional(c.Common.Basis), c.Common.Controls, number(c.Common.Offset), number(c.Common.OffsetU)}},
 		{"paired", pairedDocOf(c.Paired)}, {"curves", bandDocOf(c.Curves)}, {"gain", gainDocOf(c.Gain)},
@@ -157,7 +158,7 @@ func pairedDocOf(p *compare.Paired) *pairedDoc {
 	if p == nil {
 		return nil
 	}
-	return &pairedDoc{p.Pairs, optional(p.Why), number(p.SD), list(p.OnlyRef), list(p.OnlyNew)}
+	return &pairedDoc{p.Pairs, optional(p.Why), number(p.SD), intervalDocOf(p.Own), list(p.OnlyRef), list(p.OnlyNew)}
 }
 
 func list(names []string) []string { return append([]string{}, names...) }

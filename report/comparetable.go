@@ -59,14 +59,12 @@ func comparedLot(p *printer, s *Sheet, style Style) {
 	if c.No() {
 		sgr = red
 	}
-	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.Sentence)), style.Width)
+	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.reasonWords())), style.Width)
 	p.line("")
 	p.grid(countsGrid(s, style))
 	p.line("")
 	fact(p, "shift", shiftFact(c), style)
-	if isNumber(c.Raw) {
-		fact(p, "as read", ShiftWords(c.Raw, c.Raw+c.Low-c.Shift, c.Raw+c.High-c.Shift, "V")+", before temperature or control parts were taken off", style)
-	}
+	fact(p, "as read", rawFact(c), style)
 	if m := c.MarginWords(); m != "" {
 		fact(p, "margin", m, style)
 	}
@@ -106,7 +104,7 @@ func comparedLot(p *printer, s *Sheet, style Style) {
 		p.line("")
 		p.line("%s", style.paint("Ways to go on", bold))
 		for _, o := range c.Options {
-			wrapped(p, "  "+Clean(o.Name)+": ", "    ", Clean(Sentence(o.Text))+orNothing(" ", Clean(Sentence(o.Rule))), style.Width)
+			wrapped(p, "  "+Clean(o.Name)+": ", "    ", Clean(Sentence(o.Text)), style.Width)
 		}
 	}
 	if len(c.Warnings) > 0 {
@@ -144,16 +142,27 @@ func shiftFact(c *Compared) string {
 	return text
 }
 
+// rawFact is the shift as it was read, where something was taken off it.
+func rawFact(c *Compared) string {
+	if !isNumber(c.Raw) {
+		return ""
+	}
+	text := ShiftWords(c.Raw, c.Raw+c.Low-c.Shift, c.Raw+c.High-c.Shift, "V")
+	if c.ForTemp != 0 {
+		text += "; taken off for the temperature: " + signedVolts(roundTo(c.ForTemp, 3), math.NaN())
+	}
+	return text
+}
+
+// commonFact is the error that a whole lot shares, and what it rests on.
 func commonFact(c *Compared) string {
 	e := c.Common
-	text := Clean(e.Basis)
-	if isNumber(e.U) {
-		if text != "" {
-			text = " (" + text + ")"
-		}
-		text = "± " + FormatTwoDigits(e.U, "V") + " shared by a whole lot, in the interval" + text
-	} else {
-		text = "not known, so that it is not in the interval" + orNothing(": ", text)
+	text := "not known, so that it is not in the interval"
+	switch {
+	case isNumber(e.U) && e.U == 0:
+		text = "none" + orNothing(": ", Clean(e.Basis))
+	case isNumber(e.U):
+		text = "± " + FormatTwoDigits(e.U, "V") + " shared by a whole lot, in the interval" + orNothing("; ", Clean(e.Basis))
 	}
 	if e.Controls > 0 {
 		text += fmt.Sprintf("; %s tie the lots together", count(e.Controls, "control part"))
@@ -178,6 +187,9 @@ func pairedFact(q *compare.Paired) string {
 	text += orNothing(": ", Clean(q.Why))
 	if isNumber(q.SD) {
 		text += "; differences have a standard deviation of " + FormatTwoDigits(q.SD, "V")
+	}
+	if isNumber(q.Own.Value) {
+		text += "; by themselves, nothing taken off: " + ShiftWords(q.Own.Value, q.Own.Low, q.Own.High, "V")
 	}
 	for _, o := range []struct {
 		where string

@@ -85,6 +85,18 @@ func (c *ComparedLots) ComparedLine() string {
 	return text + "; a shift is that of the lot minus that of reference lot " + Clean(c.Reference.Lot.Name) + "."
 }
 
+// reasonWords is the sentence of the verdict without the verdict at its head.
+func (c *Compared) reasonWords() string {
+	rest, cut := strings.CutPrefix(c.Sentence, string(c.Verdict))
+	if !cut {
+		return c.Sentence
+	}
+	if _, after, ok := strings.Cut(rest, ": "); ok {
+		return after
+	}
+	return c.Sentence
+}
+
 // MarginWords tells the margin and where it comes from; "" without one.
 func (c *Compared) MarginWords() string {
 	if !isNumber(c.Margin) {
