@@ -30,11 +30,12 @@ type Sheet struct {
 	Budget bool          // the results hold how their uncertainties come about, and that is shown
 
 	Spread   lot.Spread
-	Sorting  *lot.Sorting // nil: not sorted
-	Compared *Compared    // nil: not compared with another lot
-	Version  string       // of the program
-	Hash     string       // SHA-256 over the canonical data, hex
-	Latest   string       // latest time stamp in the data: the page has no present time
+	Sorting  *lot.Sorting   // nil: not sorted
+	Compared *Compared      // nil: not compared with another lot
+	Trend    *compare.Trend // the lots of the part in the order of time; nil: not gathered
+	Version  string         // of the program
+	Hash     string         // SHA-256 over the canonical data, hex
+	Latest   string         // latest time stamp in the data: the page has no present time
 
 	Codes []fit.CodeInfo // explains the warning codes; nil: they are shown without advice
 }

@@ -52,6 +52,22 @@ const Style = `.plot{--plot-ink:#1b1f24;--plot-quiet:#d9dde1;--plot-soft:#5a6470
 .plot .lines path:hover,.plot .lines path:focus,.plot .lines .on{stroke:var(--plot-ink);stroke-opacity:1;stroke-width:var(--plot-strong,16);outline:none}
 .plot .dots path:hover,.plot .dots path:focus,.plot .dots .on{stroke:var(--plot-ink);stroke-opacity:1;outline:none}
 .plot .dots .flag:hover,.plot .dots .flag:focus,.plot .dots .flag.on{stroke-width:3.4}
+.plot .this{fill:none;stroke:var(--plot-line);stroke-width:2;stroke-linejoin:round}
+.plot .that{fill:none;stroke:var(--plot-ink);stroke-width:1.8;stroke-linejoin:round;stroke-dasharray:7 4}
+.plot .fine .this{stroke-width:10}
+.plot .fine .that{stroke-width:9;stroke-dasharray:35 20}
+.plot .fthis{fill:var(--plot-line);fill-opacity:.2}
+.plot .fthat{fill:var(--plot-ink);fill-opacity:.1}
+.plot .fine .thin{stroke-width:4.5;stroke-opacity:.45}
+.plot .fine .thin.that{stroke-dasharray:20 12}
+.plot .mthis{fill:var(--plot-line);stroke:var(--plot-line);stroke-width:1.6}
+.plot .mthat{fill:var(--plot-paper);stroke:var(--plot-ink);stroke-width:1.6}
+.plot .far{fill:var(--plot-paper);stroke:var(--plot-flag);stroke-width:2}
+.plot .span{fill:none;stroke:var(--plot-ink);stroke-width:1.4}
+.plot .strong{stroke-width:3.2}
+.plot .zero{fill:none;stroke:var(--plot-ink);stroke-width:1.4}
+.plot .room{fill:var(--plot-mark);fill-opacity:.12}
+.plot .mthis:hover,.plot .mthat:hover,.plot .mthis.on{stroke:var(--plot-flag);stroke-width:3}
 @media (forced-colors:active){.plot{--plot-ink:CanvasText;--plot-quiet:GrayText;--plot-soft:CanvasText;--plot-paper:Canvas;--plot-line:LinkText;--plot-flag:Highlight;--plot-mark:CanvasText}}
 `
 

@@ -248,53 +248,7 @@ func widenLog(lo, hi float64) (float64, float64) {
 func (t *transfer) axes() {
 	xs, ys := t.x.ticks(90, report.ScaleOf("V", max(math.Abs(t.x.lo), math.Abs(t.x.hi)))), t.y.ticks(44, t.unit)
 	xu := report.ScaleOf("V", max(math.Abs(t.x.lo), math.Abs(t.x.hi)))
-	t.raw(`<path class="grid" d="`)
-	for _, k := range xs {
-		t.raw("M")
-		t.num(t.x.at(k.value))
-		t.raw(" ")
-		t.num(t.t)
-		t.raw("V")
-		t.num(t.d)
-	}
-	for _, k := range ys {
-		if k.minor {
-			continue
-		}
-		t.raw("M")
-		t.num(t.l)
-		t.raw(" ")
-		t.num(t.y.at(k.value))
-		t.raw("H")
-		t.num(t.r)
-	}
-	t.raw(`"/><path class="axis" d="M`)
-	t.num(t.l)
-	t.raw(" ")
-	t.num(t.t)
-	t.raw("V")
-	t.num(t.d)
-	t.raw("H")
-	t.num(t.r)
-	for _, k := range ys {
-		if k.minor {
-			t.raw("M")
-			t.num(t.l)
-			t.raw(" ")
-			t.num(t.y.at(k.value))
-			t.raw("h4")
-		}
-	}
-	t.raw(`"/>`)
-	for _, k := range xs {
-		t.text("tick", t.x.at(k.value), t.d+17, "middle", k.label)
-	}
-	for _, k := range ys {
-		if !k.minor {
-			t.text("tick", t.l-7, t.y.at(k.value)+4, "end", k.label)
-		}
-	}
-	t.text("", (t.l+t.r)/2, t.d+38, "middle", "gate voltage V_GS ("+xu.Unit("V")+")")
+	t.grid(&t.x, &t.y, xs, ys)
 	name := "drain current I_D"
 	if t.sign < 0 {
 		name = "drain current \u2212I_D"
@@ -303,12 +257,7 @@ func (t *transfer) axes() {
 	if t.o.Axis == Logarithmic {
 		unit = "A"
 	}
-	name += " (" + unit + ", " + t.o.Axis.String() + ")"
-	t.raw(`<g transform="translate(15 `)
-	t.num((t.t + t.d) / 2)
-	t.raw(`) rotate(-90)">`)
-	t.text("", 0, 0, "middle", name)
-	t.raw("</g>")
+	t.axisNames("gate voltage V_GS ("+xu.Unit("V")+")", name+" ("+unit+", "+t.o.Axis.String()+")")
 }
 
 // levels marks currents across the picture, their words at the left where the
