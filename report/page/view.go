@@ -24,6 +24,8 @@ type view struct {
 	Lead       []template.HTML // the summary, one sentence each
 	Tiles      []tile
 	Alerts     []alert
+	Compared   *compared // nil: not compared with another lot
+	Trend      *trend    // nil: no run of lots was given
 	Curves     *curvesFigure
 	NoCurves   string // why there are none
 	Strip      *figure
@@ -169,6 +171,8 @@ func newView(s *report.Sheet) *view {
 	}
 	k := newKnown(s)
 	v.summary(k)
+	v.compared(k)
+	v.trend(k)
 	v.figures(k)
 	v.spread(k)
 	v.bins(k)
