@@ -10,6 +10,7 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/compare"
 	"gatesill/report"
+	"gatesill/store/record"
 )
 
 // compared is the section on the comparison with a reference lot.
@@ -232,11 +233,11 @@ func (p *pair) says(d *compared) {
 			d.Says = append(d.Says, group{rich(head), rich(text)})
 		}
 	}
-	from := ""
-	if w := p.KeyPhrase(c.Quantity); w != report.KeyOf(c.Quantity).Symbol {
-		from = ", " + report.KeyOf(c.Quantity).Name
+	sign := ""
+	if p.negative() {
+		sign = " Gate voltages of this part are below 0: a shift below 0 means that this lot needs more of it."
 	}
-	say("compared by", "%s%s. Shifts are this lot less the reference.", p.KeyPhrase(c.Quantity), from)
+	say("compared by", "%s. Shifts are this lot less the reference.%s", p.KeyPhrase(c.Quantity), sign)
 	if isNumber(c.Shift) {
 		text := fmt.Sprintf("%s, %s interval %s (%s)", p.shift(c.Shift), percent(c.Level), p.interval(c.Low, c.High), p.numbersOf())
 		if c.Test != "" {
@@ -349,7 +350,7 @@ func (p *pair) risk(say func(head, format string, args ...any)) {
 	}
 	text := ""
 	if isNumber(c.NotExcluded) {
-		text = fmt.Sprintf("A shift of up to %s either way is not excluded by these devices (%s interval; %s). ", p.size(c.NotExcluded), percent(c.Level), p.numbersOf())
+		text = fmt.Sprintf("The largest shift that these devices do not exclude is %s (%s interval; %s). ", p.size(c.NotExcluded), percent(c.Level), p.numbersOf())
 	}
 	if c.More > 0 {
 		text += fmt.Sprintf("About %d devices of each lot would tell. ", c.More)
@@ -390,7 +391,7 @@ func ties(n int) string {
 func (p *pair) populations(say func(head, format string, args ...any)) {
 	var parts []string
 	for i, s := range p.lots {
-		text := [...]string{"reference: ", "this lot: "}[i]
+		text := [...]string{"Reference: ", "This lot: "}[i]
 		switch sp := s.Spread.Split; {
 		case s.Spread.Populations > 1 && sp != nil && sp.Text != "":
 			text += "two; " + strings.TrimSuffix(report.Clean(sp.Text), ".")
@@ -405,6 +406,9 @@ func (p *pair) populations(say func(head, format string, args ...any)) {
 	}
 	say("populations", "%s", report.Sentence(strings.Join(parts, ". ")))
 }
+
+// negative reports whether more gate voltage is more negative.
+func (p *pair) negative() bool { return p.Part.Channel == record.PChannel && p.unit == "V" }
 
 // value is the quantity compared of a device that takes part; NaN when it has
 // none.

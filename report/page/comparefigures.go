@@ -15,8 +15,8 @@ import (
 )
 
 const (
-	singleCurves = 40 // up to so many a lot are drawn one by one
-	fanShare     = 40 // devices from which the range of a fan leaves out the outermost twentieths
+	singleCurves = 12 // up to so many a lot are drawn one by one
+	fanShare     = 20 // devices from which the range of a fan leaves out the outermost twentieths
 )
 
 func (p *pair) figures(d *compared) {
@@ -26,7 +26,7 @@ func (p *pair) figures(d *compared) {
 		if p.margin {
 			margin = fmt.Sprintf(", against a margin of %s", p.plusMinus())
 		}
-		d.Interval = &figure{SVG: template.HTML(svg.AppendInterval(nil, svg.IntervalOptions{
+		d.Interval = &figure{Marks: true, SVG: template.HTML(svg.AppendInterval(nil, svg.IntervalOptions{
 			Frame: svg.Frame{ID: "compare-interval", Title: "Shift of this lot with its intervals", Desc: fmt.Sprintf("Shift %s, %s interval %s%s.", p.shift(c.Shift), percent(c.Level), p.interval(c.Low, c.High), margin)},
 			Value: c.Shift, Low: c.Low, High: c.High, Level: c.Level, MarginLow: c.MarginLow, MarginHigh: c.MarginHigh, Margin: c.Margin,
 		}))}
@@ -69,7 +69,7 @@ func (p *pair) steps(d *compared) {
 	}
 	o := svg.DistributionOptions{
 		Frame:    svg.Frame{ID: "compare-steps", Title: "Both lots by " + p.KeyPhrase(c.Quantity)},
-		Quantity: p.KeyPhrase(c.Quantity), Unit: p.unit, Negative: p.Part.Channel == record.PChannel && p.unit == "V",
+		Quantity: p.KeyPhrase(c.Quantity), Unit: p.unit, Negative: p.negative(),
 		Margin: c.Margin, Low: math.NaN(), High: math.NaN(),
 	}
 	if c.Quantity == fit.KeyVgsth { // the data-sheet limits are of the threshold
@@ -182,6 +182,10 @@ func (p *pair) curves(d *compared) {
 			k = newKnown(p.ref)
 		}
 		all, _ := k.sweeps()
+		all = slices.DeleteFunc(all, func(s drawnSweep) bool {
+			d := &k.Devices[s.device]
+			return d.Role == record.Control || d.State() != fit.Measured && d.State() != fit.Above
+		})
 		drawn += len(all)
 		if len(all) > singleCurves {
 			continue
@@ -286,7 +290,7 @@ func (p *pair) band(d *compared) {
 		}
 		t.Rows = append(t.Rows, []cell{{Text: rich(report.FormatGiven(x.I, "A")), Head: true}, number(num(x.Shift)), number(num(x.Low) + " to " + num(x.High)), number(strconv.Itoa(x.Reference)), number(strconv.Itoa(x.Candidate))})
 	}
-	d.Shift = &figure{SVG: template.HTML(pic), Caption: rich(note), Data: t}
+	d.Shift = &figure{Marks: true, SVG: template.HTML(pic), Caption: rich(note), Data: t}
 }
 
 func (k *known) trendFigure(t *compare.Trend) *figure {
@@ -319,5 +323,5 @@ func (k *known) trendFigure(t *compare.Trend) *figure {
 		data.Rows = append(data.Rows, []cell{nameCell(l.Name), optional(l.At), optional(l.DateCode), number(strconv.Itoa(l.N)),
 			number(report.Scale{}.FormatNumber(l.Centre, l.U, 0)), number(report.FormatTwoDigits(l.U, unit)), number(report.FormatTwoDigits(l.SD, unit)), text(where)})
 	}
-	return &figure{SVG: template.HTML(b), Caption: rich(note), Data: data}
+	return &figure{Marks: true, SVG: template.HTML(b), Caption: rich(note), Data: data}
 }

@@ -47,17 +47,14 @@ func (p *pair) tables(d *compared) {
 
 // counts is what stands behind either lot.
 func (p *pair) counts() *table {
-	t := &table{Class: "words", Caption: "Both lots", Heads: []head{{"", false}, {richf("reference, lot %s", p.c.Reference), true}, {richf("this lot, %s", p.c.Candidate), true}}}
+	t := &table{Class: "words", Caption: "Both lots", Heads: []head{{"", false}, {richf("reference, lot %s", p.c.Reference), false}, {richf("this lot, %s", p.c.Candidate), false}}}
 	row := func(label string, of func(i int) string) {
 		r := []cell{{Text: rich(label), Head: true}}
 		for i := range p.lots {
 			w := of(i)
-			switch w {
-			case "":
-				r = append(r, cell{Text: report.NotGiven, Right: true, None: true})
-			default:
-				r = append(r, number(w))
-			}
+			c := optional(w)
+			c.None = c.None || w == report.NotAvailable
+			r = append(r, c)
 		}
 		t.Rows = append(t.Rows, r)
 	}
@@ -69,7 +66,7 @@ func (p *pair) counts() *table {
 	row("with a value (n)", whole(func(i int) int { return c.Counts[i].WithValue }))
 	row("above: never reach the current", whole(func(i int) int { return c.Counts[i].Above }))
 	row("with neither", whole(func(i int) int { return c.Counts[i].Without }))
-	row("flagged, and kept in", whole(func(i int) int { return c.Counts[i].Flagged }))
+	row("flagged: counted, never left out for that", whole(func(i int) int { return c.Counts[i].Flagged }))
 	row("set aside: open, shorted, wrong way round, excluded", whole(func(i int) int { return c.Counts[i].Aside }))
 	row("control parts, in no statistic", whole(func(i int) int { return c.Counts[i].Control }))
 	row("centre (trimmed mean)", func(i int) string {

@@ -14,6 +14,7 @@ import (
 )
 
 type figure struct {
+	Marks   bool // its marks are no devices
 	SVG     template.HTML
 	Caption template.HTML
 	Data    *table

@@ -145,6 +145,7 @@ var (
 func rich(words string) template.HTML {
 	text := template.HTMLEscapeString(report.Clean(words))
 	text = symbols.Replace(text)
+	text = strings.ReplaceAll(text, "n = ", "n\u00a0=\u00a0")
 	text = stamp.ReplaceAllString(text, "$1 $2 UTC")
 	text = date.ReplaceAllString(text, `<span class="nw">$0</span>`)
 	return template.HTML(beforeUnit.ReplaceAllString(text, "$1\u00a0$2"))

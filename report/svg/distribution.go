@@ -134,7 +134,7 @@ func (d *distribution) ranges() {
 		}
 		first, last = min(first, last), max(first, last)
 		a, b = min(a, b), max(a, b)
-		room := 4 * (b - a)
+		room := 0.75 * (b - a)
 		lo, hi = min(lo, max(first, a-room)), max(hi, min(last, b+room))
 	}
 	lo, hi = widen(lo, hi)
@@ -174,14 +174,15 @@ func (d *distribution) axes() {
 	d.axisNames(title, share)
 }
 
-// posts marks the margin about the reference's centre and the limits.
+// posts marks the margin about the reference's centre and the limits, each with
+// its words where the lines of the lots do not run.
 func (d *distribution) posts(centre float64) {
 	if m := d.o.Margin; m > 0 {
-		d.post(&d.x, centre-m, "ref", "reft", "margin "+signed(-m))
-		d.post(&d.x, centre+m, "ref", "reft", "margin "+signed(m))
+		d.post(&d.x, centre-m, "ref", "reft", "margin "+signed(-m), d.o.Negative, true)
+		d.post(&d.x, centre+m, "ref", "reft", "margin "+signed(m), !d.o.Negative, false)
 	}
-	d.post(&d.x, d.o.Low, "lim", "limt", "lower limit")
-	d.post(&d.x, d.o.High, "lim", "limt", "upper limit")
+	d.post(&d.x, d.o.Low, "lim", "limt", "lower limit", d.o.Negative, true)
+	d.post(&d.x, d.o.High, "lim", "limt", "upper limit", !d.o.Negative, false)
 }
 
 // share is how high the line stands behind the first k devices of a lot.
@@ -226,15 +227,23 @@ func (d *distribution) steps(s side) {
 	d.words("lot " + d.lots[s].Name)
 	d.raw(`</title></path></g>`)
 	if n := d.lots[s].Above; n > 0 {
-		words := strconv.Itoa(n) + " above: their gate voltage is not known"
-		p, at := label{d.r - 6, float64(y)/fine - 6, true}, float64(y)/fine+16
-		if d.o.Negative {
-			p = label{d.l + 6, float64(y)/fine - 6, false}
-		}
-		if q, ok := d.place(words, []label{p, {p.x, at, p.right}}); ok {
-			d.text("", q.x, q.y, anchorOf(q), words)
-		}
+		d.beyond(s, float64(y)/fine, n)
 	}
+}
+
+// beyond ends the line of a lot with a tip: there are devices further on.
+func (d *distribution) beyond(s side, y float64, n int) {
+	x, tip := d.r, "l-9 5v-10z"
+	if d.o.Negative {
+		x, tip = d.l, "l9 5v-10z"
+	}
+	d.raw(`<path class="m`, s.class(), `" d="M`)
+	d.num(x)
+	d.raw(" ")
+	d.num(y)
+	d.raw(tip, `"><title>`)
+	d.words(d.lots[s].Name + ": " + strconv.Itoa(n) + " above, whose gate voltage is not known")
+	d.raw(`</title></path>`)
 }
 
 // marks draws a mark for every device of a small lot and for every tenth of a
@@ -259,8 +268,11 @@ func (d *distribution) marks(s side) {
 		}
 	} else {
 		r := 3.6
-		if len(list) > 60 {
-			r = 2.6
+		switch {
+		case len(list) > 90:
+			r = 1.6
+		case len(list) > 40:
+			r = 2.4
 		}
 		for i, p := range list {
 			if p.X < d.x.lo || p.X > d.x.hi {

@@ -169,6 +169,7 @@ func (v *overlay) shade(s side) {
 // dots marks the median at each current and says what it is.
 func (v *overlay) dots(s side) {
 	f := &v.fans[s]
+	lx, ly := math.Inf(-1), math.Inf(-1)
 	for i := range min(len(f.Currents), len(f.Middle)) {
 		if !drawable(f.Middle[i]) || !drawable(f.Currents[i]) {
 			continue
@@ -177,6 +178,10 @@ func (v *overlay) dots(s side) {
 		if !(x >= v.l && x <= v.r && y >= v.t && y <= v.d) {
 			continue
 		}
+		if math.Hypot(x-lx, y-ly) < 9 {
+			continue // the marks would run together; the line goes on
+		}
+		lx, ly = x, y
 		words := f.Name + " at " + report.FormatGiven(f.Currents[i], "A") + ": median " + volts(f.Middle[i])
 		if i < len(f.Low) && i < len(f.High) && drawable(f.Low[i]) && drawable(f.High[i]) {
 			words += ", " + volts(math.Min(f.Low[i], f.High[i])) + " to " + volts(math.Max(f.Low[i], f.High[i]))

@@ -103,9 +103,10 @@ func (c *canvas) rect(class string, x0, y0, x1, y1 float64) {
 // inside holds a place within the plotting area.
 func (c *canvas) inside(x float64) float64 { return max(c.l, min(x, c.r)) }
 
-// post marks a value by an upright line with words at its head, in the first of
-// some rows that is free.
-func (c *canvas) post(s *scale, x float64, line, text, words string) {
+// post marks a value by an upright line with words at its head, or at its foot,
+// in the first of some rows that is free; to the right of it, or, if that is
+// asked for or there is no room, to the left.
+func (c *canvas) post(s *scale, x float64, line, text, words string, foot, left bool) {
 	p := s.at(x)
 	if !drawable(x) || !(p >= c.l-0.5 && p <= c.r+0.5) {
 		return
@@ -116,10 +117,17 @@ func (c *canvas) post(s *scale, x float64, line, text, words string) {
 	var places []label
 	for row := range 4 {
 		y := c.t + 13 + float64(row)*16
-		places = append(places, label{p + 5, y, false}, label{p - 5, y, true})
+		if foot {
+			y = c.d - 12 - float64(row)*16
+		}
+		at := []label{{p + 5, y, false}, {p - 5, y, true}}
+		if left {
+			at[0], at[1] = at[1], at[0]
+		}
+		places = append(places, at...)
 	}
 	if at, ok := c.place(words, places); ok {
-		c.text(text, at.x, at.y, anchorOf(at), words)
+		c.text(text+" halo", at.x, at.y, anchorOf(at), words)
 	}
 }
 
@@ -133,7 +141,7 @@ func (c *canvas) rail(s *scale, y float64, line, text, words string) {
 	c.level(c.l, c.r, p)
 	c.raw(`"/>`)
 	if at, ok := c.place(words, []label{{c.r - 6, p - 5, true}, {c.r - 6, p + 14, true}, {c.l + 6, p - 5, false}, {c.l + 6, p + 14, false}}); ok {
-		c.text(text, at.x, at.y, anchorOf(at), words)
+		c.text(text+" halo", at.x, at.y, anchorOf(at), words)
 	}
 }
 

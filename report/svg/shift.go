@@ -96,7 +96,7 @@ func (s *shift) draw() {
 	s.grid(&s.x, &s.y, s.x.ticks(90, report.Scale{}), s.y.ticks(44, u))
 	s.axisNames("drain current (A, logarithmic)", "shift of V_GS ("+u.Unit("V")+")")
 	for _, l := range s.o.Levels {
-		s.post(&s.x, l.Current, "ref", "reft", l.Label)
+		s.post(&s.x, l.Current, "ref", "reft", l.Label, false, false)
 	}
 	if m := s.o.Margin; m > 0 {
 		s.rail(&s.y, m, "ref", "reft", "margin "+signed(m))
@@ -145,7 +145,7 @@ func (s *shift) band() {
 		if drawable(p.Low) && drawable(p.High) {
 			words += ", " + percent + " " + signed(p.Low) + " to " + signed(p.High)
 			out = p.Low > 0 || p.High < 0
-			s.raw(`<path class="span" d="`)
+			s.raw(`<path class="span faint" d="`)
 			s.upright(x, s.y.at(p.Low), s.y.at(p.High))
 			s.raw(`"/>`)
 		}
@@ -218,7 +218,7 @@ func AppendInterval(dst []byte, o IntervalOptions) []byte {
 		c.raw(`"/>`)
 		w := textWidth(m.words, 12) / 2
 		if at, ok := c.place(m.words, []label{{max(c.l, p-w), c.t - 8, false}, {p + 4, c.t - 8, false}, {p - 4, c.t - 8, true}}); ok {
-			c.text(m.text, at.x, at.y, anchorOf(at), m.words)
+			c.text(m.text+" halo", at.x, at.y, anchorOf(at), m.words)
 		}
 	}
 	percent := strconv.FormatFloat(100*o.Level, 'g', 4, 64) + " % interval"
@@ -247,7 +247,7 @@ func AppendInterval(dst []byte, o IntervalOptions) []byte {
 		if drawable(o.Value) {
 			c.mark(candidate, x.at(o.Value), h, 5, 0, "shift "+signed(o.Value))
 			mid := min(max(x.at(o.Value), c.l+textWidth(r.words, 13)/2), c.r-textWidth(r.words, 13)/2)
-			c.text("", mid, h-11, "middle", r.words)
+			c.text("halo", mid, h-11, "middle", r.words)
 		}
 	}
 	if !drawable(o.Value) {

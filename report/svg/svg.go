@@ -64,10 +64,13 @@ const Style = `.plot{--plot-ink:#1b1f24;--plot-quiet:#d9dde1;--plot-soft:#5a6470
 .plot .mthat{fill:var(--plot-paper);stroke:var(--plot-ink);stroke-width:1.6}
 .plot .far{fill:var(--plot-paper);stroke:var(--plot-flag);stroke-width:2}
 .plot .span{fill:none;stroke:var(--plot-ink);stroke-width:1.4}
+.plot .faint{stroke-width:1;stroke-opacity:.55}
+.plot .halo{paint-order:stroke;stroke:var(--plot-paper);stroke-width:3.5px;stroke-linejoin:round}
 .plot .strong{stroke-width:3.2}
 .plot .zero{fill:none;stroke:var(--plot-ink);stroke-width:1.4}
 .plot .room{fill:var(--plot-mark);fill-opacity:.12}
 .plot .mthis:hover,.plot .mthat:hover,.plot .mthis.on{stroke:var(--plot-flag);stroke-width:3}
+.plot .fine .thin:hover,.plot .fine .thin.on{stroke:var(--plot-flag);stroke-opacity:1;stroke-width:11}
 @media (forced-colors:active){.plot{--plot-ink:CanvasText;--plot-quiet:GrayText;--plot-soft:CanvasText;--plot-paper:Canvas;--plot-line:LinkText;--plot-flag:Highlight;--plot-mark:CanvasText}}
 `
 
