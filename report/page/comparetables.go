@@ -7,6 +7,7 @@ import (
 	"strconv"
 	"strings"
 
+	"gatesill/fit"
 	"gatesill/report"
 	"gatesill/store/record"
 )
@@ -121,20 +122,30 @@ func (p *pair) pairs(d *compared) {
 	if q == nil {
 		return
 	}
-	in := map[string]float64{}
+	in := map[string]fit.Quantity{}
 	for i := range p.ref.Devices {
 		r := &p.ref.Devices[i]
 		if x := p.value(r); isNumber(x) && r.Role != record.Control {
-			in[r.Name] = x
+			in[r.Name] = *r.Result.At(p.c.Quantity)
 		}
 	}
 	vs := report.ScaleOf(p.unit, 1)
 	t := &table{Caption: "Devices in both lots", Heads: []head{{"device", false}, {richf("reference (%s)", vs.Unit(p.unit)), true}, {richf("this lot (%s)", vs.Unit(p.unit)), true}, {richf("difference (%s)", p.scale.Unit(p.unit)), true}}}
+	// One number of digits for the whole column: that of the surest difference.
+	least := math.NaN()
+	for i := range p.Devices {
+		n := &p.Devices[i]
+		if r, ok := in[n.Name]; ok && isNumber(p.value(n)) {
+			if u := math.Hypot(r.U, n.Result.At(p.c.Quantity).U); u > 0 && !(least <= u) {
+				least = u
+			}
+		}
+	}
 	total := 0
 	for i := range p.Devices {
 		n := &p.Devices[i]
-		x, ok := in[n.Name]
-		y := p.value(n)
+		r, ok := in[n.Name]
+		x, y := r.Value, p.value(n)
 		if !ok || !isNumber(y) || n.Role == record.Control {
 			continue
 		}
@@ -142,11 +153,11 @@ func (p *pair) pairs(d *compared) {
 			continue
 		}
 		u := n.Result.At(p.c.Quantity).U
-		diff := p.scale.FormatNumber(y-x, u, 0)
+		diff := p.scale.FormatNumber(y-x, least, 0)
 		if y > x {
 			diff = "+" + diff
 		}
-		t.Rows = append(t.Rows, []cell{nameCell(n.Name), number(vs.FormatNumber(x, u, 0)), number(vs.FormatNumber(y, u, 0)), number(diff)})
+		t.Rows = append(t.Rows, []cell{nameCell(n.Name), number(vs.FormatNumber(x, r.U, 0)), number(vs.FormatNumber(y, u, 0)), number(diff)})
 	}
 	if total > 0 {
 		note := fmt.Sprintf("This lot less the reference, as measured (n = %d).", total)
@@ -178,7 +189,11 @@ func (p *pair) made(d *compared) {
 		{"data up to", p.ref.Latest},
 		{"devices known", strconv.Itoa(len(p.ref.Devices))},
 	} {
-		d.Facts = append(d.Facts, field{Label: rich(f.label), Value: given(f.value), Given: f.value != ""})
+		v := given(f.value)
+		if f.value != "" && f.value == p.ref.Hash {
+			v = "<code>" + plain(f.value) + "</code>"
+		}
+		d.Facts = append(d.Facts, field{Label: rich(f.label), Value: v, Given: f.value != ""})
 	}
 	t := &table{Caption: "Conditions of both lots", Heads: append([]head{{"lot", false}}, conditionHeads...)}
 	for i, s := range p.lots {

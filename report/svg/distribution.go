@@ -129,7 +129,7 @@ func (d *distribution) ranges() {
 		n := len(list) - 1
 		first, last := list[0].X, list[n].X
 		a, b := list[n/20].X, list[n-n/20].X
-		if n < 20 && n >= 4 { // small lots: their ends aside
+		if n >= 7 && n < 20 { // small lots: their ends aside
 			a, b = list[1].X, list[n-1].X
 		}
 		first, last = min(first, last), max(first, last)

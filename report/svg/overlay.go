@@ -61,6 +61,9 @@ func AppendOverlay(dst []byte, ref, cand Fan, o OverlayOptions) ([]byte, Drawn) 
 	v.ranges()
 	c.open("img")
 	v.axes()
+	// The medians begin at the one edge of the picture: beside their foot, on the
+	// side to which they rise, there is room.
+	v.levelsRight = !o.PChannel
 	v.levels()
 	var words [2]string
 	for s := range v.fans {

@@ -134,10 +134,7 @@ func (s *shift) band() {
 	s.raw(`<path class="this" d="`)
 	s.b = appendPath(s.b, line, keep)
 	s.raw(`"/></g>`)
-	percent := "band"
-	if s.o.Level > 0 && s.o.Level < 1 {
-		percent = strconv.FormatFloat(100*s.o.Level, 'g', 4, 64) + " % band"
-	}
+	percent := levelWords(s.o.Level, "band")
 	for _, p := range s.points {
 		x, y := s.x.at(p.I), s.y.at(p.Shift)
 		words := "at " + report.FormatGiven(p.I, "A") + ": " + signed(p.Shift)
@@ -157,6 +154,14 @@ func (s *shift) band() {
 		}
 		s.drawn.Shown++
 	}
+}
+
+// levelWords is "95 % band", and "band" where the level is not known.
+func levelWords(level float64, what string) string {
+	if level > 0 && level < 1 {
+		return strconv.FormatFloat(100*level, 'g', 4, 64) + " % " + what
+	}
+	return what
 }
 
 // IntervalOptions lay out the plot of one shift with its intervals.
@@ -221,7 +226,7 @@ func AppendInterval(dst []byte, o IntervalOptions) []byte {
 			c.text(m.text+" halo", at.x, at.y, anchorOf(at), m.words)
 		}
 	}
-	percent := strconv.FormatFloat(100*o.Level, 'g', 4, 64) + " % interval"
+	percent := levelWords(o.Level, "interval")
 	rows := []struct {
 		low, high float64
 		words     string

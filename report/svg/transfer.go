@@ -100,6 +100,8 @@ type transfer struct {
 	keep   []bool
 	stack  [][2]int
 	ends   []end // of flagged curves, for their names
+
+	levelsRight bool // words of the levels stand at the right
 }
 
 // place is a point of a curve in fine units; brk: the curve does not come from
@@ -260,8 +262,7 @@ func (t *transfer) axes() {
 	t.axisNames("gate voltage V_GS ("+xu.Unit("V")+")", name+" ("+unit+", "+t.o.Axis.String()+")")
 }
 
-// levels marks currents across the picture, their words at the left where the
-// curves are low.
+// levels marks currents across the picture, their words at one side.
 func (t *transfer) levels() {
 	for _, l := range t.o.Levels {
 		y := t.y.at(l.Current)
@@ -278,8 +279,14 @@ func (t *transfer) levels() {
 		if y > t.d-14 { // no room between the line and the axis
 			y = t.d - 1
 		}
-		t.text("reft", t.l+8, y-4, "", l.Label)
-		t.taken = append(t.taken, box{t.l, y - 16, t.l + 8 + textWidth(l.Label, 12), y})
+		w := 8 + textWidth(l.Label, 12)
+		if t.levelsRight {
+			t.text("reft halo", t.r-8, y-4, "end", l.Label)
+			t.taken = append(t.taken, box{t.r - w, y - 16, t.r, y})
+			continue
+		}
+		t.text("reft halo", t.l+8, y-4, "", l.Label)
+		t.taken = append(t.taken, box{t.l, y - 16, t.l + w, y})
 	}
 }
 

@@ -34,7 +34,7 @@ func AppendTrend(dst []byte, t *compare.Trend, o TrendOptions) ([]byte, Drawn) {
 		o.Height = 340
 	}
 	c := &canvas{b: dst, f: o.Frame}
-	c.l, c.t, c.r, c.d = 84, 14, o.Width-24, o.Height-90
+	c.l, c.t, c.r, c.d = 84, 14, o.Width-100, o.Height-84
 	r := &trend{canvas: c, o: o, run: t}
 	r.ranges()
 	c.open("img")
@@ -93,23 +93,38 @@ func (r *trend) draw() {
 	r.raw(`) rotate(-90)">`)
 	r.text("", 0, 0, "middle", r.o.Quantity+" ("+u.Unit("V")+")")
 	r.raw("</g>")
-	provisional := ""
-	if r.run.Provisional {
-		provisional = " (provisional)"
-	}
-	r.rail(&r.y, r.run.High, "lim", "limt", "upper control limit"+provisional)
-	r.rail(&r.y, r.run.Low, "lim", "limt", "lower control limit"+provisional)
-	r.rail(&r.y, r.run.Centre, "ref", "reft", "mean of the lots")
+	r.beside(r.run.Centre, "ref", "reft", "mean")
+	r.beside(r.run.High, "lim", "limt", "upper limit")
+	r.beside(r.run.Low, "lim", "limt", "lower limit")
 	r.line()
-	every := max(1, int(math.Ceil(float64(len(r.run.Lots))*18/(r.r-r.l))))
+	every := max(1, int(math.Ceil(float64(len(r.run.Lots))*26/(r.r-r.l))))
+	for i, l := range r.run.Lots { // words keep clear of the marks
+		if x, y := r.at(i), r.y.at(l.Centre); drawable(l.Centre) {
+			r.taken = append(r.taken, box{x - 6, y - 6, x + 6, y + 6})
+		}
+	}
 	for i, l := range r.run.Lots {
-		if i%every == 0 || l.Name == r.o.This {
+		if i%every == 0 {
 			r.lotName(i, l.Name)
 		}
 		r.lot(i, l)
 	}
 	if r.drawn.Shown == 0 {
 		r.text("tick", (r.l+r.r)/2, (r.t+r.d)/2, "middle", "No centres to draw.")
+	}
+}
+
+// beside marks a value across the picture, its words at the right of it.
+func (r *trend) beside(v float64, line, text, words string) {
+	y := r.y.at(v)
+	if !drawable(v) || !(y >= r.t-0.5 && y <= r.d+0.5) {
+		return
+	}
+	r.raw(`<path class="`, line, `" d="`)
+	r.level(r.l, r.r, y)
+	r.raw(`"/>`)
+	if p, ok := r.place(words, []label{{r.r + 6, y + 4, false}, {r.r + 6, y - 11, false}, {r.r + 6, y + 19, false}}); ok {
+		r.text(text, p.x, p.y, "", words)
 	}
 }
 
@@ -151,13 +166,27 @@ func (r *trend) lot(i int, l compare.TrendLot) {
 		r.upright(x, r.y.at(l.Centre-l.U), r.y.at(l.Centre+l.U))
 		r.raw(`"/>`)
 	}
+	this := l.Name == r.o.This
+	if this {
+		words += " (this lot)"
+	}
 	if !l.Outside {
-		r.mark(candidate, x, y, 4, 0, words)
+		size := 4.0
+		if this {
+			size = 6
+		}
+		r.mark(candidate, x, y, size, 0, words)
+		if !this {
+			return
+		}
+		if p, ok := r.place("this lot", around(x, y)); ok {
+			r.text("halo", p.x, p.y, anchorOf(p), "this lot")
+		}
 		return
 	}
 	r.apart(x, y, words+" (outside the control limits)")
 	name := shorten(l.Name, 18)
-	if p, ok := r.place(name, []label{{x + 9, y - 5, false}, {x - 9, y - 5, true}, {x + 9, y + 16, false}, {x - 9, y + 16, true}}); ok {
+	if p, ok := r.place(name, around(x, y)); ok {
 		r.name(p, name)
 		r.drawn.Labels++
 	} else {
@@ -165,18 +194,18 @@ func (r *trend) lot(i int, l compare.TrendLot) {
 	}
 }
 
+// around lists places for a name beside a mark.
+func around(x, y float64) []label {
+	return []label{{x - 26, y - 12, false}, {x - 26, y + 22, false}, {x + 9, y - 7, false}, {x - 9, y - 7, true}, {x + 9, y + 18, false}, {x - 9, y + 18, true}}
+}
+
 // lotName writes the name of a lot aslant below its place.
 func (r *trend) lotName(i int, name string) {
-	class := "tick"
-	if name == r.o.This {
-		class = ""
-		name = shorten(name, 9) + " (this)"
-	}
 	r.raw(`<g transform="translate(`)
 	r.num(r.at(i) + 4)
 	r.raw(" ")
 	r.num(r.d + 14)
 	r.raw(`) rotate(-40)">`)
-	r.text(class, 0, 0, "end", escapeRich(shorten(name, 14)))
+	r.text("tick", 0, 0, "end", escapeRich(shorten(name, 14)))
 	r.raw("</g>")
 }
