@@ -26,7 +26,7 @@ func (p *pair) figures(d *compared) {
 		if p.margin {
 			margin = fmt.Sprintf(", against a margin of %s", p.plusMinus())
 		}
-		d.Interval = &figure{Marks: true, SVG: template.HTML(svg.AppendInterval(nil, svg.IntervalOptions{
+		d.Interval = &figure{Label: "shift with its intervals", Marks: true, SVG: template.HTML(svg.AppendInterval(nil, svg.IntervalOptions{
 			Frame: svg.Frame{ID: "compare-interval", Title: "Shift of this lot with its intervals", Desc: fmt.Sprintf("Shift %s, %s interval %s%s.", p.shift(c.Shift), percent(c.Level), p.interval(c.Low, c.High), margin)},
 			Value: c.Shift, Low: c.Low, High: c.High, Level: c.Level, MarginLow: c.MarginLow, MarginHigh: c.MarginHigh, Margin: c.Margin,
 		}))}
@@ -91,7 +91,7 @@ func (p *pair) steps(d *compared) {
 	if p.margin {
 		note += " The shaded stretch is the margin about the centre of the reference."
 	}
-	d.Steps = &figure{SVG: template.HTML(b), Caption: rich(note), Data: p.shares(lots, o.Negative)}
+	d.Steps = &figure{Label: "distributions of both lots", SVG: template.HTML(b), Caption: rich(note), Data: p.shares(lots, o.Negative)}
 }
 
 func lie(n int) string {
@@ -203,7 +203,7 @@ func (p *pair) curves(d *compared) {
 		d.NoCurves = "No curves of both lots to lay over each other."
 		return
 	}
-	f := &curvesFigure{Switch: "two", Data: p.fanData(fans)}
+	f := &curvesFigure{Switch: "two", Of: "both lots", Data: p.fanData(fans)}
 	desc := fmt.Sprintf("Median transfer curves of both lots with their ranges: reference, n = %d, and this lot, n = %d. The numbers stand in the table below.", fans[0].N, fans[1].N)
 	for _, axis := range []svg.Axis{svg.SquareRoot, svg.Logarithmic} {
 		b, _ := svg.AppendOverlay(nil, fans[0], fans[1], svg.OverlayOptions{
@@ -290,12 +290,12 @@ func (p *pair) band(d *compared) {
 		}
 		t.Rows = append(t.Rows, []cell{{Text: rich(report.FormatGiven(x.I, "A")), Head: true}, number(num(x.Shift)), number(num(x.Low) + " to " + num(x.High)), number(strconv.Itoa(x.Reference)), number(strconv.Itoa(x.Candidate))})
 	}
-	d.Shift = &figure{Marks: true, SVG: template.HTML(pic), Caption: rich(note), Data: t}
+	d.Shift = &figure{Label: "shift against current", Marks: true, SVG: template.HTML(pic), Caption: rich(note), Data: t}
 }
 
 func (k *known) trendFigure(t *compare.Trend) *figure {
 	b, drawn := svg.AppendTrend(nil, t, svg.TrendOptions{
-		Frame:    svg.Frame{ID: "trend", Title: "Lots in the order of time by " + k.KeyPhrase(t.By), Desc: fmt.Sprintf("Centres of %s with standard errors and control limits. The numbers stand in the table below.", plural(len(t.Lots), "lot"))},
+		Frame:    svg.Frame{ID: "run-of-lots", Title: "Lots in the order of time by " + k.KeyPhrase(t.By), Desc: fmt.Sprintf("Centres of %s with standard errors and control limits. The numbers stand in the table below.", plural(len(t.Lots), "lot"))},
 		Quantity: k.KeyPhrase(t.By), This: k.Sheet.Lot.Name,
 	})
 	unit := report.KeyOf(t.By).Unit
@@ -323,5 +323,5 @@ func (k *known) trendFigure(t *compare.Trend) *figure {
 		data.Rows = append(data.Rows, []cell{nameCell(l.Name), optional(l.At), optional(l.DateCode), number(strconv.Itoa(l.N)),
 			number(report.Scale{}.FormatNumber(l.Centre, l.U, 0)), number(report.FormatTwoDigits(l.U, unit)), number(report.FormatTwoDigits(l.SD, unit)), text(where)})
 	}
-	return &figure{Marks: true, SVG: template.HTML(b), Caption: rich(note), Data: data}
+	return &figure{Label: "run of lots", Marks: true, SVG: template.HTML(b), Caption: rich(note), Data: data}
 }

@@ -48,7 +48,7 @@ func (p *pair) tables(d *compared) {
 
 // counts is what stands behind either lot.
 func (p *pair) counts() *table {
-	t := &table{Class: "words", Caption: "Both lots", Heads: []head{{"", false}, {richf("reference, lot %s", p.c.Reference), false}, {richf("this lot, %s", p.c.Candidate), false}}}
+	t := &table{Class: "words", Caption: "Both lots", Heads: []head{{"of each lot", false}, {richf("reference, lot %s", p.c.Reference), false}, {richf("this lot, %s", p.c.Candidate), false}}}
 	row := func(label string, of func(i int) string) {
 		r := []cell{{Text: rich(label), Head: true}}
 		for i := range p.lots {
@@ -75,7 +75,8 @@ func (p *pair) counts() *table {
 		if !isNumber(c.Centre[i]) {
 			return report.NotAvailable
 		}
-		return fmt.Sprintf("%s (n = %d)", report.FormatPlain(c.Centre[i], math.NaN(), p.unit), n)
+		sc := report.ScaleOf(p.unit, c.Centre[i])
+		return fmt.Sprintf("%s %s (n = %d)", sc.FormatNumber(c.Centre[i], p.step, 0), sc.Unit(p.unit), n) // the digits of the shift
 	})
 	row("standard deviation", func(i int) string {
 		if !isNumber(c.SD[i]) {

@@ -14,7 +14,8 @@ import (
 )
 
 type figure struct {
-	Marks   bool // its marks are no devices
+	Label   string // what it shows, in a few words
+	Marks   bool   // its marks are no devices
 	SVG     template.HTML
 	Caption template.HTML
 	Data    *table
@@ -30,6 +31,7 @@ type picture struct {
 
 type curvesFigure struct {
 	Switch   string // name of the switch between its pictures
+	Of       string // whose curves; "" of the lot of the page
 	Pictures []picture
 	Caption  template.HTML
 	Data     *table

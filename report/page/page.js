@@ -67,7 +67,7 @@
   // What a mark that is no device of this lot says of itself.
   const tipAt = (x, y) => {
     const hit = document.elementFromPoint(x, y);
-    return hit?.closest("svg.plot") && hit.tagName === "path" ? hit.querySelector(":scope > title")?.textContent ?? "" : "";
+    return hit?.closest("svg.plot") && hit.tagName === "path" && !hit.dataset.d ? hit.querySelector(":scope > title")?.textContent ?? "" : "";
   };
   let tipped = null;
   const tip = (svg, text) => {
@@ -89,8 +89,7 @@
     svg.addEventListener("pointermove", (e) => {
       cancelAnimationFrame(frame);
       frame = requestAnimationFrame(() => {
-        const d = near(e.clientX, e.clientY);
-        if (!tip(svg, d === null ? tipAt(e.clientX, e.clientY) : "")) show(d ?? pinned);
+        if (!tip(svg, tipAt(e.clientX, e.clientY))) show(near(e.clientX, e.clientY) ?? pinned);
       });
     });
     svg.addEventListener("pointerleave", () => { cancelAnimationFrame(frame); tip(svg, ""); show(pinned); });

@@ -225,8 +225,16 @@ func TestOverlayShowsBothLots(t *testing.T) {
 			}
 		}
 	}
-	// A gap parts the shade; single curves stand for it.
+	// A gap ends the shade, and a current beyond it alone has none.
 	cand.High[2] = nan
+	gap, _ := AppendOverlay(nil, ref, cand, OverlayOptions{Frame: Frame{ID: "o"}})
+	for _, e := range read(t, gap) {
+		corners := len(regexp.MustCompile(`-?[0-9]+`).FindAllString(e.attr["d"], -1)) / 2
+		if e.attr["class"] == "fthis" && corners != 4 || e.attr["class"] == "fthat" && corners != 8 {
+			t.Errorf("shade %s has %d corners", e.attr["class"], corners)
+		}
+	}
+	// Single curves stand for the shade.
 	cand.Curves = []Curve{{Name: "B7", X: []float64{3, 4}, Y: []float64{0, 1}, Ref: 7}}
 	picture, drawn := AppendOverlay(nil, ref, cand, OverlayOptions{Frame: Frame{ID: "o"}})
 	if strings.Contains(string(picture), `class="fthis"`) || !strings.Contains(string(picture), `data-d="7"`) || drawn.Shown != 3 {
