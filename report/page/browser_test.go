@@ -292,6 +292,9 @@ func TestAccessibility(t *testing.T) {
 		"spots":     invented.Lot(invented.Options{Devices: 12, Points: 1, Spots: true, Seed: 7}),
 		"compared":  compared(two[0], two[1], invented.Against{Margin: 0.05, After: true, Paired: true}),
 	}
+	run := lots["compared"]
+	run.Trend = invented.Trend(25)
+	lots["compared"] = run
 	for name, lot := range lots {
 		for _, scheme := range []string{"light", "dark"} {
 			t.Run(name+" "+scheme, func(t *testing.T) {

@@ -73,7 +73,7 @@ func AppendDistribution(dst []byte, ref, cand Steps, o DistributionOptions) ([]b
 	for s := range d.lots {
 		d.marks(side(s))
 	}
-	if d.drawn.Shown == 0 {
+	if d.drawn.Shown == 0 && ref.Above+cand.Above == 0 {
 		c.text("tick", (c.l+c.r)/2, (c.t+c.d)/2, "middle", "No values to draw.")
 	}
 	c.close()
@@ -198,7 +198,7 @@ func (d *distribution) steps(s side) {
 	if d.o.Negative {
 		from, to = to, from
 	}
-	if len(list) == 0 {
+	if len(list)+d.lots[s].Above == 0 {
 		return
 	}
 	x, y := from, fineUnits(d.d)

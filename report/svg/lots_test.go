@@ -166,6 +166,30 @@ func abs(n int) int {
 	return n
 }
 
+// A lot whose every device lies above, one without devices, one of equal values.
+func TestOneSidedDistributions(t *testing.T) {
+	plain := inventedSteps("B", 20, 3, 2)
+	picture, drawn := AppendDistribution(nil, Steps{Name: "A", Above: 4, Centre: nan}, plain, none())
+	list := read(t, picture)
+	corners := stepCorners(t, line(t, list, "that").attr["d"])
+	if first, last := corners[0], corners[len(corners)-1]; first[1] != last[1] || first[1] != 354*fine || last[0] <= first[0] {
+		t.Errorf("a lot that lies above runs from %v to %v", first, last)
+	}
+	if drawn.Shown != 20 || !strings.Contains(string(picture), "A: 4 above, whose gate voltage is not known") {
+		t.Errorf("drawn %+v", drawn)
+	}
+	picture, drawn = AppendDistribution(nil, Steps{Name: "A", Centre: nan}, Steps{Name: "B", Centre: nan}, none())
+	read(t, picture)
+	if drawn.Shown != 0 || !strings.Contains(string(picture), "No values to draw.") {
+		t.Errorf("drawn %+v", drawn)
+	}
+	same := Steps{Name: "A", Centre: 3, Spots: []Spot{{Name: "1", X: 3}, {Name: "2", X: 3}, {Name: "3", X: 3}, {Name: "4", X: nan}}}
+	picture, drawn = AppendDistribution(nil, same, plain, none())
+	if corners := stepCorners(t, line(t, read(t, picture), "that").attr["d"]); len(corners) != 4 || drawn.Empty != 1 {
+		t.Errorf("three equal values are %v, drawn %+v", corners, drawn)
+	}
+}
+
 // Devices of small lots are named, those of large ones marked at every tenth.
 func TestDevicesOfDistributionsAreNamed(t *testing.T) {
 	small, _ := AppendDistribution(nil, inventedSteps("A", 30, 3, 1), inventedSteps("B", 30, 3, 2), none())

@@ -48,7 +48,7 @@ func AppendOverlay(dst []byte, ref, cand Fan, o OverlayOptions) ([]byte, Drawn) 
 	}
 	c := &canvas{b: dst, f: o.Frame}
 	c.l, c.t, c.r, c.d = 84, 52, o.Width-16, o.Height-46
-	v := &overlay{transfer: &transfer{canvas: c, o: TransferOptions{Frame: o.Frame, Axis: o.Axis, PChannel: o.PChannel, Levels: o.Levels}, sign: 1}, fans: [2]Fan{ref, cand}}
+	v := &overlay{transfer: &transfer{canvas: c, o: TransferOptions(o), sign: 1}, fans: [2]Fan{ref, cand}}
 	if o.PChannel {
 		v.sign = -1
 	}

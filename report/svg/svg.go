@@ -1,6 +1,7 @@
-// Package svg draws the plots: transfer curves over the gate voltage and the
-// strip plot of one quantity with its bins. It is the one renderer for files,
-// for the report page and for the bench page.
+// Package svg draws the plots: transfer curves over the gate voltage, the strip
+// plot of one quantity with its bins, and of two lots their distributions, their
+// curves, the shift between them and the run of lots it stands in. It is the one
+// renderer for files, for the report page and for the bench page.
 //
 // It computes nothing but positions on the paper, needs no script and no font,
 // and fetches nothing. Whatever it is given, it writes well-formed XML with
