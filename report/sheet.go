@@ -44,6 +44,14 @@ type Sheet struct {
 type Compared struct {
 	Reference *Sheet
 	compare.Comparison
+	MarginFrom string // where the margin comes from and how it became volts, in words; "" none
+}
+
+// ComparedLots is one lot or several against a reference lot.
+type ComparedLots struct {
+	Reference  *Sheet
+	Candidates []Sheet        // each with Compared, in the order asked for
+	Trend      *compare.Trend // of all lots, the reference among them; nil with one candidate
 }
 
 // Verdicts gives the verdict of the spread on each device, by name.

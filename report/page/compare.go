@@ -58,11 +58,12 @@ type pair struct {
 	scale  report.Scale
 	step   float64 // by which shifts are told apart: decides their digits
 	margin bool
+	from   string // where the margin comes from
 }
 
 func newPair(k *known) *pair {
 	c := &k.Compared.Comparison
-	p := &pair{known: k, c: c, ref: k.Compared.Reference, unit: report.KeyOf(c.Quantity).Unit, margin: isNumber(c.Margin) && c.Margin > 0}
+	p := &pair{known: k, c: c, ref: k.Compared.Reference, unit: report.KeyOf(c.Quantity).Unit, margin: isNumber(c.Margin) && c.Margin > 0, from: k.Compared.MarginFrom}
 	if p.ref == nil {
 		p.ref = &report.Sheet{}
 	}
@@ -122,12 +123,12 @@ func probability(p float64) string {
 	switch {
 	case !isNumber(p):
 		return report.NotAvailable
-	case p < 1e-4:
-		return "< 0.0001"
-	case p < 0.01:
-		return strconv.FormatFloat(p, 'f', 4, 64)
+	case p >= 0.995:
+		return "1.0"
+	case p >= 1e-3:
+		return strconv.FormatFloat(p, 'g', 2, 64)
 	}
-	return strconv.FormatFloat(p, 'f', 2, 64)
+	return strconv.FormatFloat(p, 'e', 1, 64)
 }
 
 // numbersOf is "n = 38 and 36", the reference first.
@@ -303,17 +304,28 @@ func (p *pair) says(d *compared) {
 
 // equals puts a sign of equality before a number that has no sign of its own.
 func equals(number string) string {
-	if strings.HasPrefix(number, "<") || number == report.NotAvailable {
+	if number == report.NotAvailable {
 		return number
 	}
 	return "= " + number
 }
 
+// takenOff says what parts the shift as read from the shift told: what the
+// control parts explain, and for the rest the temperatures of the lots.
 func (p *pair) takenOff() string {
-	if p.c.Common.Offset != 0 && isNumber(p.c.Common.Offset) {
-		return p.shift(p.c.Common.Offset) + " was taken off for the control parts, and for temperature where a coefficient is known"
+	rest := p.c.Raw - p.c.Shift
+	var parts []string
+	if o := p.c.Common.Offset; o != 0 && isNumber(o) {
+		parts = append(parts, p.shift(o)+" was taken off for the control parts")
+		rest -= o
 	}
-	return "what control parts and temperature explain was taken off"
+	if math.Abs(rest) > 1e-6*largest(p.c.Raw, p.c.Shift) {
+		parts = append(parts, p.shift(rest)+" was taken off for the temperatures of the lots")
+	}
+	if len(parts) == 0 {
+		return "what control parts and temperature explain was taken off"
+	}
+	return strings.Join(parts, " and ")
 }
 
 // rule says by which margin and how the verdict follows.
@@ -325,7 +337,7 @@ func (p *pair) rule(say func(head, format string, args ...any)) {
 		return
 	}
 	at := ""
-	if t := p.marginTime(); t != "" {
+	if t := p.marginTime(); t != "" && p.from == "" {
 		at = ", set " + report.Clean(t)
 	}
 	switch c.MarginSet {
@@ -336,7 +348,7 @@ func (p *pair) rule(say func(head, format string, args ...any)) {
 	default:
 		at += ", when with respect to the readings is not known"
 	}
-	say("margin", "%s%s: the largest shift that does not matter.", p.plusMinus(), at)
+	say("margin", "%s%s: the largest shift that does not matter. %s", p.plusMinus(), at, report.Sentence(p.from))
 	say("decision rule", "The 90 %% interval of the shift is held against the margin: wholly inside it, the lot is inside the margin; wholly outside, it is outside; else the devices are too few to tell. Here it is %s.", p.interval(c.MarginLow, c.MarginHigh))
 }
 

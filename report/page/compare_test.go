@@ -70,14 +70,15 @@ func TestComparisonIsTold(t *testing.T) {
 	s := compared(two[0], two[1], invented.Against{Margin: 0.05, Paired: true})
 	c := &s.Compared.Comparison
 	c.Shift, c.Low, c.High, c.MarginLow, c.MarginHigh, c.NotExcluded, c.Raw = 0.0123, 0.0041, 0.0205, 0.0055, 0.0191, 0.0205, 0.0143
+	s.Compared.MarginFrom = "20 % of the idle current, stored with lot 2611 on 2026-05-02"
 	c.DF, c.P, c.Centre = 52.3, 0.0031, [2]float64{3.384, 3.3963}
 	c.Counts = [2]compare.Counts{{N: 38, WithValue: 35, Above: 2, Without: 1, Flagged: 4, Aside: 3, Control: 6}, {N: 31, WithValue: 30, Above: 1, Flagged: 5, Aside: 7, Control: 8}}
 	c.More, c.MoreText = 120, "it takes the spread of these lots for that of the next"
 	text := words(section(t, write(t, s)))
 	for _, want := range []string{
 		report.Sentence(c.Sentence), "+12.3 mV, 95 % interval +4.1 to +20.5 mV (n = 35 of the reference, 30 of this lot). By invented test on means, 52.3 degrees of freedom, p = 0.0031.",
-		"+14.3 mV, before -2.0 mV was taken off for the control parts",
-		"± 50 mV, set 2026-05-02 08:00:00 UTC, before the first reading of this lot: the largest shift that does not matter.",
+		"+14.3 mV, before -2.0 mV was taken off for the control parts and +4.0 mV was taken off for the temperatures of the lots.",
+		"± 50 mV, before the first reading of this lot: the largest shift that does not matter. 20 % of the idle current, stored with lot 2611 on 2026-05-02.",
 		"Here it is +5.5 to +19.1 mV.", "called inside it in about 5 of 100 comparisons",
 		"The largest shift that these devices do not exclude is 20.5 mV (95 % interval; n = 35 of the reference, 30 of this lot). About 120 devices of each lot would tell. It takes the spread of these lots for that of the next.",
 		"gatesill plan shift", "400 µV (standard uncertainty of the shift, in the interval). Basis: control parts. 2 control parts tie both lots together; -2.00 ± 0.40 mV was taken off the shift for them.",
@@ -102,6 +103,7 @@ func TestWhenTheMarginWasSet(t *testing.T) {
 	require.Contains(t, after, "Note. The margin was set after readings of this lot were known.")
 	before := words(section(t, write(t, compared(two[0], two[1], invented.Against{Margin: 0.05}))))
 	require.NotContains(t, before, "after readings")
+	require.Contains(t, before, "± 50 mV, set 2026-05-02 08:00:00 UTC, before the first reading of this lot: the largest shift that does not matter.")
 	// A margin other than the stored one was given for this comparison: the time of
 	// the stored one is not its time.
 	other := words(section(t, write(t, compared(two[0], two[1], invented.Against{Margin: 0.07}))))
@@ -189,7 +191,7 @@ func TestRunOfLots(t *testing.T) {
 	require.Contains(t, page, `href="#trend"`)
 	require.Contains(t, text, "2612: 3.4700 ± 0.0060 V, n = 32, 2026-01-04 (this lot) (outside the control limits)")
 	require.Contains(t, text, "Fewer than 20 lots: the limits are provisional.")
-	require.Contains(t, text, "2600, 2612 50 20 to 80 0.0004 0.0020")
+	require.Contains(t, text, "2600, 2612 50 20 to 80 4.0e-04 0.002")
 	require.NotContains(t, text, "the order of the lots is not that of their making")
 	s.Trend.Untimed = true
 	require.Contains(t, words(write(t, s)), "the order of the lots is not that of their making")
