@@ -21,7 +21,8 @@ type compared struct {
 	Verdict   string
 	Sentence  template.HTML
 	Tiles     []tile
-	Alerts    []alert
+	Alerts    []alert // what weighs on the verdict itself
+	Notes     []alert
 	Interval  *figure
 	Steps     *figure
 	Curves    *curvesFigure
@@ -222,7 +223,7 @@ func (p *pair) alerts(d *compared) {
 			Next: "Let a lot that was measured after the margin was set confirm the verdict."})
 	}
 	for _, w := range report.JoinWarnings(p.c.Warnings) {
-		d.Alerts = append(d.Alerts, alert{Text: rich(report.Sentence(w.Text)), Next: rich(p.Advice(w.Code).Next)})
+		d.Notes = append(d.Notes, alert{Text: rich(report.Sentence(w.Text)), Next: rich(p.Advice(w.Code).Next)})
 	}
 }
 

@@ -85,7 +85,7 @@ func TestComparisonIsTold(t *testing.T) {
 		"of the reference (95 % interval", "invented test on spreads", "Gain factor of this lot against the reference: +1.2 %, 95 % interval -0.4 % to +2.8 % (n = 34 and 30; p = 0.14), at equal threshold",
 		"By serial, 30 pairs. 34 serials stand in both lots and their values go together. The differences scatter by 1.1 mV (1 sd, n = 30).",
 		"with a value (n) 35 30", "above: never reach the current 2 1", "with neither 1 0", "flagged: counted, never left out for that 4 5", "excluded 3 7", "control parts, in no statistic 6 8",
-		"centre (trimmed mean) 3.3840 V (n = 35) 3.3963 V (n = 30)", "parts in the lot 160 144", "how the sample was taken every fourth part of the tubes, in tube order every fourth",
+		"centre (trimmed mean) 3.384 V (n = 35) 3.396 V (n = 30)", "parts in the lot 160 144", "how the sample was taken every fourth part of the tubes, in tube order every fourth",
 		"invented test on ranks 412", "invented test on whole distributions 0.31 n/a n/a", "They decide nothing", "take it as it is With the old network", "send back No rule of yours is broken. outside-margin: not met.", "re-adjust The trimmers move by 15 mV at the centre. none stored",
 		"Only in the reference, 1 device : D39", "Only in this lot, 2 devices : X1, X2", "Heating was not checked in either lot.", "Populations Reference: one. This lot: one.",
 		s.Compared.Reference.Hash, "fitted by gatesill 0.1.0", "Conditions of both lots", "reference load: drain fed through R_L from V_DD", "Instruments of the reference",
@@ -112,6 +112,7 @@ func TestWhenTheMarginWasSet(t *testing.T) {
 	require.Contains(t, none, "None is set: whether the lots differ can be said")
 	require.Contains(t, none, "interval of the shift leaves 0 out")
 	require.NotContains(t, none, "90 % interval")
+	require.NotContains(t, none, "not on these lines")
 }
 
 // The devices in both lots stand in a list with their differences.
@@ -127,6 +128,7 @@ func TestPairsAreListed(t *testing.T) {
 	page := section(t, write(t, s))
 	require.Contains(t, words(page), "D01 3.2500 3.2625 +12.5 This lot less the reference, as measured (n = 1).")
 	require.NotContains(t, page, "one by one")
+	require.Contains(t, words(page), "not on these lines")
 
 	many := compared(invented.Options{Devices: 200, Points: 6, Seed: 5}, invented.Options{Devices: 200, Points: 6, Seed: 6}, invented.Against{Paired: true})
 	require.Contains(t, section(t, write(t, many)), "The devices in both lots, one by one")
@@ -162,6 +164,18 @@ func TestComparisonOfLittle(t *testing.T) {
 		require.NotContains(t, text, "NaN")
 		require.NotContains(t, text, "Inf")
 	}
+}
+
+// The column of rules is there when there is a rule.
+func TestRulesOfOptions(t *testing.T) {
+	s := compared(two[0], two[1], invented.Against{})
+	require.Contains(t, words(section(t, write(t, s))), "what follows your stored rule")
+	for i := range s.Compared.Options {
+		s.Compared.Options[i].Rule = ""
+	}
+	without := words(section(t, write(t, s)))
+	require.NotContains(t, without, "your stored rule")
+	require.Contains(t, without, "No rule of yours is stored for any of them.")
 }
 
 // A p-channel lot: what a shift below 0 means is said, and 'above' lies at the

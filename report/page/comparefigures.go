@@ -88,6 +88,9 @@ func (p *pair) steps(d *compared) {
 	if drawn.Beyond > 0 {
 		note += fmt.Sprintf(" %s much further out than the others: the lines step at the edge of the picture for them.", lie(drawn.Beyond))
 	}
+	if c.Paired != nil {
+		note += " The verdict rests on the differences of the same devices, which are listed below, not on these lines."
+	}
 	if p.margin {
 		note += " The shaded stretch is the margin about the centre of the reference."
 	}

@@ -4,10 +4,12 @@ import (
 	"fmt"
 	"html/template"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
 	"gatesill/fit"
+	"gatesill/fit/compare"
 	"gatesill/report"
 	"gatesill/store/record"
 )
@@ -34,13 +36,22 @@ func (p *pair) tables(d *compared) {
 		d.Secondary = t
 	}
 	if len(c.Options) > 0 {
-		t := &table{Class: "words", Caption: "Ways to go on", Heads: []head{{"way", false}, {"what follows", false}, {"your stored rule", false}}, Note: "The person decides; the numbers are what follows from each way."}
+		t := &table{Class: "words", Caption: "Ways to go on", Heads: []head{{"way", false}, {"what follows", false}}, Note: "The person decides; the numbers are what follows from each way."}
+		rules := slices.ContainsFunc(c.Options, func(o compare.Option) bool { return o.Rule != "" })
+		if rules {
+			t.Heads = append(t.Heads, head{"your stored rule", false})
+		} else {
+			t.Note += " No rule of yours is stored for any of them."
+		}
 		for _, o := range c.Options {
-			rule := cell{Text: "none stored", None: true}
-			if o.Rule != "" {
-				rule = text(report.Sentence(o.Rule))
+			row := []cell{{Text: rich(o.Name), Head: true}, text(report.Sentence(o.Text))}
+			switch {
+			case o.Rule != "":
+				row = append(row, text(report.Sentence(o.Rule)))
+			case rules:
+				row = append(row, cell{Text: "none stored", None: true})
 			}
-			t.Rows = append(t.Rows, []cell{{Text: rich(o.Name), Head: true}, text(report.Sentence(o.Text)), rule})
+			t.Rows = append(t.Rows, row)
 		}
 		d.Options = t
 	}
@@ -76,7 +87,7 @@ func (p *pair) counts() *table {
 			return report.NotAvailable
 		}
 		sc := report.ScaleOf(p.unit, c.Centre[i])
-		return fmt.Sprintf("%s %s (n = %d)", sc.FormatNumber(c.Centre[i], p.step, 0), sc.Unit(p.unit), n) // the digits of the shift
+		return fmt.Sprintf("%s %s (n = %d)", sc.FormatNumber(c.Centre[i], c.SD[i]/math.Sqrt(float64(n)), 0), sc.Unit(p.unit), n)
 	})
 	row("standard deviation", func(i int) string {
 		if !isNumber(c.SD[i]) {
