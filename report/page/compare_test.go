@@ -291,13 +291,13 @@ func TestSameComparisonSameBytes(t *testing.T) {
 	require.NotContains(t, first, time.Now().UTC().Format("2006-01-02"), "the page knows the present day")
 }
 
-// Two lots of 5,000 devices: what the comparison adds to the page is bounded by
+// Two lots of thousands of devices: what the comparison adds to the page is bounded by
 // its pictures, not by its devices.
 func TestComparisonOfManyStaysSmall(t *testing.T) {
 	if testing.Short() {
-		t.Skip("5,000 devices are left out of a short run")
+		t.Skip("3,000 devices are left out of a short run")
 	}
-	o := invented.Options{Devices: 5000, Points: 6, Seed: 5}
+	o := invented.Options{Devices: 3000, Points: 5, Seed: 5}
 	n := o
 	n.Seed, n.Shift = 6, 0.012
 	size := len(section(t, write(t, compared(o, n, invented.Against{Margin: 0.05}))))
