@@ -239,6 +239,7 @@ type verdictDoc struct {
 	Device  string      `json:"device"`
 	Flagged bool        `json:"flagged"`
 	Reasons []reasonDoc `json:"reasons"`
+	*judgementDoc
 }
 
 func summaryDocs(sp *lot.Spread) byKey[summaryDoc] {
@@ -260,11 +261,11 @@ func limitDocs(sp *lot.Spread) byKey[limitDoc] {
 // verdictDocs lists every device of the lot, those too that the spread did not
 // look at.
 func verdictDocs(s *Sheet) []verdictDoc {
-	verdicts := s.Verdicts()
+	verdicts, judgements := s.Verdicts(), judgementDocs(s.Spec)
 	docs := make([]verdictDoc, 0, len(s.Devices))
 	for _, d := range s.Devices {
 		v := verdicts[d.Name]
-		doc := verdictDoc{d.Name, v.Flagged, []reasonDoc{}}
+		doc := verdictDoc{d.Name, v.Flagged, []reasonDoc{}, judgements[d.Name]}
 		for _, r := range v.Reasons {
 			doc.Reasons = append(doc.Reasons, reasonDoc(r))
 		}
@@ -285,8 +286,8 @@ func rowsOf[T any](list []T) rows {
 func SpreadJSON(w io.Writer, s Sheet) error {
 	return writeObject(w, append([]member{
 		{"schema", Schema}, {"lot", s.Lot.Name}, {"populations", max(1, s.Spread.Populations)},
-		{"summary", summaryDocs(&s.Spread)}, {"limits", limitDocs(&s.Spread)},
-		{"devices", rowsOf(verdictDocs(&s))}}, heldMembers(&s, s.SortedBy)...)...)
+		{"split", splitDocOf(s.Spread.Split)}, {"summary", summaryDocs(&s.Spread)}, {"limits", limitDocs(&s.Spread)},
+		{"specification", specDocOf(s.Spec)}, {"devices", rowsOf(verdictDocs(&s))}}, heldMembers(&s, s.SortedBy)...)...)
 }
 
 type placedDoc struct {

@@ -256,7 +256,7 @@ func TestTukeyOfTwo(t *testing.T) {
 		if !(a.SD > 1e-3) {
 			t.Skip("no scatter")
 		}
-		tukey, single := Tukey(g, 0.95)[0], PairwiseT(g, 0.95)[0]
+		tukey, single := Tukey(g, 0)[0], PairwiseT(g, 0.95)[0]
 		same := func(what string, got, want, tol float64) {
 			if !(math.Abs(got-want) <= tol) {
 				t.Fatalf("%s: %.15g and %.15g", what, got, want)
@@ -266,6 +266,10 @@ func TestTukeyOfTwo(t *testing.T) {
 		same("F and t²", a.F, x*x, 1e-9*(1+a.F))
 		same("P of F and of t", a.P, single.P, 1e-10)
 		same("P of Tukey", tukey.P, single.P, 1e-10)
+		if len(g[0])%4 != 0 { // an interval takes milliseconds
+			return
+		}
+		tukey = Tukey(g, 0.95)[0]
 		same("low", tukey.Low, single.Low, 1e-9*(1+math.Abs(single.Low)))
 		same("high", tukey.High, single.High, 1e-9*(1+math.Abs(single.High)))
 	})

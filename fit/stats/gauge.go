@@ -27,7 +27,7 @@ type Component struct {
 // EffectTest is a line of the table of a gauge study with its test.
 type EffectTest struct {
 	Squares
-	F, P float64 // against the line that Gauge.Against names; NaN for the lines that are tested against
+	F, P float64 // against Within for the interaction; for the others against it, or Error where Pooled
 }
 
 // Gauge is the outcome of a repeatability study; numbers that the form of the study

@@ -3,8 +3,6 @@ package stats
 import (
 	"math"
 	"testing"
-
-	"pgregory.net/rapid"
 )
 
 // nearPart is near with a relative tolerance.
@@ -146,18 +144,19 @@ func TestStudentizedRangeRefuses(t *testing.T) {
 // More values have a wider range, and fewer degrees of freedom a longer tail; the
 // quantile goes back to where it came from.
 func TestStudentizedRangeProperties(t *testing.T) {
-	rapid.Check(t, func(t *rapid.T) {
-		k := rapid.IntRange(2, 12).Draw(t, "k")
-		df := rapid.Float64Range(1, 100).Draw(t, "df")
-		q := rapid.Float64Range(3, 15).Draw(t, "q")
-		above := StudentizedRangeUpper(q, k, df)
-		if more := StudentizedRangeUpper(q, k+1, df); !(more > above) {
-			t.Fatalf("above %v lie %v of %d and %v of one more", q, above, k, more)
+	for _, q := range []float64{2.5, 4, 11} {
+		for _, k := range []int{2, 3, 9, 30} {
+			for _, df := range []float64{1, 2.5, 17, 400} {
+				above := StudentizedRangeUpper(q, k, df)
+				if more := StudentizedRangeUpper(q, k+1, df); !(more > above) {
+					t.Errorf("above %v lie %v of %d and %v of one more", q, above, k, more)
+				}
+				if wider := StudentizedRangeUpper(q, k, df*1.1); !(wider < above) && above < 0.1 {
+					t.Errorf("above %v lie %v with %v and %v with more degrees of freedom", q, above, df, wider)
+				}
+			}
 		}
-		if wider := StudentizedRangeUpper(q, k, df*1.1); !(wider < above) && above < 0.1 {
-			t.Fatalf("above %v lie %v with %v and %v with more degrees of freedom", q, above, df, wider)
-		}
-	})
+	}
 	for _, k := range []int{2, 7} {
 		for _, df := range []float64{1, 4, 60} {
 			for _, p := range []float64{0.01, 0.5, 0.9, 0.999} {
@@ -168,26 +167,14 @@ func TestStudentizedRangeProperties(t *testing.T) {
 	}
 }
 
-// Student's t against scipy 1.10.1, scipy.stats.t.sf, where one form has lost its
-// digits: t² below df, and many degrees of freedom.
-func TestTUpperForms(t *testing.T) {
-	for _, c := range []struct{ x, df, want float64 }{
-		{10 / math.Sqrt2, 300, 1.0846976779505501e-11 / 2},
-		{20, 2000, 1.43579484e-81},
-		{0.5, 2000, 0.30856504},
-		{5, 2000, 6.23289784e-07 / 2},
-	} {
-		tol := 1e-8 // as printed
-		if c.df == 300 {
-			tol = 1e-12
-		}
-		nearPart(t, "t", TUpper(c.x, c.df), c.want, tol)
-	}
-	for _, x := range []float64{0, 0.1, 0.5, 0.99, 1, 2, 7, 20, 40} {
-		below, above := TUpper(x, tMany), TUpper(x, tMany*(1+1e-9))
-		nearPart(t, "both forms at the limit", above, below, 1e-6)
-		if direct := overScale(tMany, 1, func(s float64) float64 { return NormalUpper(x * s) }); !(math.Abs(direct-below) <= 1e-12*below) {
-			t.Errorf("t %v: forms give %.16g and %.16g", x, below, direct)
+// Student's t is a normal value over such a standard deviation: the same tail by
+// another way, also against scipy 1.10.1, 2*scipy.stats.t.sf(10/2**.5, 300).
+func TestTailOfTAsMean(t *testing.T) {
+	for _, df := range []float64{1, 2.5, 7, 30, 300, 999, 1001, 1e5, 1e9} {
+		for _, x := range []float64{0, 0.1, 0.45, 0.55, 1, 2, 7, 20, 40} {
+			want := overScale(df, 1, func(s float64) float64 { return NormalUpper(x * s) })
+			nearPart(t, "tail of t", TUpper(x, df), want, 1e-11)
 		}
 	}
+	nearPart(t, "scipy", StudentizedRangeUpper(10, 2, 300), 1.0846976779505501e-11, 1e-12)
 }
