@@ -317,7 +317,7 @@ func TestSimulatedPairs(t *testing.T) {
 			if differs/N > bar(0.06, n) || odd == 0 && differs/N < lowBar(0.03, n) {
 				t.Errorf("false 'differs' %.4f", differs/N)
 			}
-			if odd == 0 && paired/N < 0.97 || strangers/N > 0.002 {
+			if odd == 0 && paired/N < 0.97 || strangers/N > bar(0.001, n) {
 				t.Errorf("paired %.3f, strangers %.4f", paired/N, strangers/N)
 			}
 		}
