@@ -6,6 +6,7 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"time"
 
 	"gatesill/fit"
 	"gatesill/fit/compare"
@@ -97,6 +98,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if err != nil {
 		return err
 	}
+	start := time.Now()
 	for i := range sheets {
 		c, err := compareSheets(&ref, &sheets[i], by, rq)
 		if err != nil {
@@ -112,6 +114,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 		}
 		cl.Trend = &trend
 	}
+	env.detail("%s compared in %v", count(1+len(sheets), "lot"), time.Since(start).Round(time.Millisecond))
 	if env.JSON {
 		err = report.CompareJSON(env.Out, cl)
 	} else {
@@ -216,7 +219,17 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, failed("", "lot %q against %q: %w", cand.Lot.Name, ref.Lot.Name, err)
 	}
 	out.Warnings = append(warnings, out.Warnings...)
+	if onlySpots(ref) && onlySpots(cand) { // nobody expects curves of them
+		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
+	}
 	return out, nil
+}
+
+// onlySpots reports whether no sweep of the lot is a curve.
+func onlySpots(s *report.Sheet) bool {
+	only := true
+	counted(s, func(sw *report.Sweep) { only = only && sw.Direction == record.Spot })
+	return only
 }
 
 // someAbove reports whether a device is known not to reach the current.
