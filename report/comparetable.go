@@ -176,7 +176,7 @@ func rawFact(c *Compared) string {
 	}
 	text := ShiftWords(c.Raw, c.Raw+c.Low-c.Shift, c.Raw+c.High-c.Shift, "V")
 	if c.ForTemp != 0 {
-		text += "; taken off for the temperature: " + signedVolts(roundTo(c.ForTemp, 3), math.NaN())
+		text += "; taken off for the temperature: " + offsetWords(roundTo(c.ForTemp, 3), math.NaN())
 	}
 	return text
 }
@@ -194,14 +194,14 @@ func commonFact(c *Compared) string {
 	if e.Controls > 0 {
 		text += fmt.Sprintf("; %s tie the lots together", count(e.Controls, "control part"))
 		if e.Offset != 0 {
-			text += ", " + signedVolts(e.Offset, e.OffsetU) + " taken off"
+			text += ", " + offsetWords(e.Offset, e.OffsetU) + " taken off"
 		}
 	}
 	return text
 }
 
-// signedVolts writes a voltage with its sign and uncertainty.
-func signedVolts(x, u float64) string {
+// offsetWords writes a voltage with its sign and uncertainty.
+func offsetWords(x, u float64) string {
 	text := FormatPlain(x, u, "V")
 	if x > 0 {
 		text = "+" + text

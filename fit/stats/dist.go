@@ -5,7 +5,6 @@ import (
 
 	"gonum.org/v1/gonum/integrate/quad"
 	"gonum.org/v1/gonum/mathext"
-	"gonum.org/v1/gonum/stat/distuv"
 )
 
 // Tail probabilities are taken from the tail itself, never as 1 minus the other
@@ -37,8 +36,10 @@ func TUpper(t, df float64) float64 {
 		return math.NaN()
 	case math.IsInf(df, 1):
 		return NormalUpper(t)
-	case math.IsInf(t, 0):
-		return map[bool]float64{true: 0, false: 1}[t > 0]
+	case math.IsInf(t, 1):
+		return 0
+	case math.IsInf(t, -1):
+		return 1
 	case t < 0:
 		return 1 - TUpper(-t, df)
 	case t < 0.5:
@@ -162,7 +163,7 @@ func ChiSquareQuantile(p, df float64) float64 {
 	if !(p > 0 && p < 1) || !(df > 0) {
 		return math.NaN()
 	}
-	return 2 * mathext.GammaIncRegInv(df/2, p)
+	return chiSquareAt(p, 1-p, df)
 }
 
 // ChiSquareUpperQuantile is the value that chi-square with df degrees of freedom
@@ -171,7 +172,7 @@ func ChiSquareUpperQuantile(p, df float64) float64 {
 	if !(p > 0 && p < 1) || !(df > 0) {
 		return math.NaN()
 	}
-	return 2 * mathext.GammaIncRegCompInv(df/2, p)
+	return chiSquareAt(1-p, p, df)
 }
 
 // FUpper is the probability that F with d1 and d2 degrees of freedom exceeds f.
@@ -183,7 +184,7 @@ func FUpper(f, d1, d2 float64) float64 {
 	if f <= 0 {
 		return 1
 	}
-	return mathext.RegIncBeta(d2/2, d1/2, 1/(1+f*(d1/d2)))
+	return math.Min(1, mathext.RegIncBeta(d2/2, d1/2, 1/(1+f*(d1/d2))))
 }
 
 // FQuantile is the value that F with d1 and d2 degrees of freedom falls below
@@ -192,5 +193,45 @@ func FQuantile(p, d1, d2 float64) float64 {
 	if !(p > 0 && p < 1) || !(d1 > 0) || !(d2 > 0) {
 		return math.NaN()
 	}
-	return distuv.F{D1: d1, D2: d2}.Quantile(p)
+	return positiveAt(p, 1-p, 1,
+		func(x float64) float64 { return FUpper(1/x, d2, d1) },
+		func(x float64) float64 { return FUpper(x, d1, d2) })
+}
+
+// chiSquareAt is the value with p below and q above.
+func chiSquareAt(p, q, df float64) float64 {
+	return positiveAt(p, q, df,
+		func(x float64) float64 { return ChiSquareLower(x, df) },
+		func(x float64) float64 { return ChiSquareUpper(x, df) })
+}
+
+// positiveAt is the positive value with probability p below and q above, near
+// some value, from the tail that is the smaller one. The library's inverse
+// functions are not used: they panic far out.
+func positiveAt(p, q, near float64, lower, upper func(x float64) float64) float64 {
+	f := func(u float64) float64 { return math.Log(lower(math.Exp(u)) / p) }
+	if q < p {
+		f = func(u float64) float64 { return -math.Log(upper(math.Exp(u)) / q) }
+	}
+	lo := math.Log(near)
+	flo := f(lo)
+	hi, fhi := lo, flo
+	for step := 0.5; flo > 0; step *= 2 {
+		hi, fhi = lo, flo
+		if lo -= step; lo < -700 {
+			return 0
+		}
+		flo = f(lo)
+	}
+	for step := 0.5; fhi < 0; step *= 2 {
+		lo, flo = hi, fhi
+		if hi += step; hi > 700 {
+			return math.Inf(1)
+		}
+		fhi = f(hi)
+	}
+	if math.IsNaN(flo) || math.IsNaN(fhi) {
+		return math.NaN()
+	}
+	return math.Exp(falsePosition(f, lo, flo, hi, fhi, 1e-16))
 }

@@ -158,3 +158,21 @@ func TestNoncentralRoundTrip(t *testing.T) {
 	relative(t, "central", NoncentralTUpper(2.3, 7, 0), TUpper(2.3, 7), 1e-13)
 	relative(t, "no end of degrees", NoncentralTUpper(9, math.Inf(1), 1), NormalUpper(8), 1e-15)
 }
+
+// The two ways to noncentral t, which share no step, where both hold.
+func TestNoncentralFar(t *testing.T) {
+	for _, df := range []float64{0.5, 1, 3, 20, 100, 790} {
+		for _, delta := range []float64{205, 400, 1000} {
+			for _, part := range []float64{0.1, 0.5, 0.9, 1, 1.2, 5, 300} {
+				x := delta * part
+				what := fmt.Sprint(x, df, delta)
+				if want := mixed(x, df, delta); want > 1e-290 {
+					relative(t, what, steep(x, df, delta), want, 1e-10)
+				}
+				if want := mixed(-x, df, -delta); want > 1e-290 {
+					relative(t, what+" lower", steep(-x, df, -delta), want, 1e-10)
+				}
+			}
+		}
+	}
+}

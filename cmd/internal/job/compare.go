@@ -212,6 +212,7 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	opt.Margin, opt.MarginSet = m.volts, m.set
+	opt.Repeatability = repeatabilityOf(ref, cand, by)
 	opt.SendBack = first(cand.Lot.SendBack, ref.Lot.SendBack)
 	out.MarginFrom = m.text
 	out.Comparison, err = compare.Lots(comparedLot(ref), comparedLot(cand), opt)
@@ -223,6 +224,18 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
 	}
 	return out, nil
+}
+
+// repeatabilityOf is the greater of what is known of the lots' benches, V; NaN where
+// nothing is.
+func repeatabilityOf(ref, cand *report.Sheet, by fit.Key) float64 {
+	worst := math.NaN()
+	for _, s := range []*report.Sheet{ref, cand} {
+		if r, ok := s.Repeatability[by]; ok && !(r.Value <= worst) {
+			worst = r.Value
+		}
+	}
+	return worst
 }
 
 // onlySpots reports whether no sweep of the lot is a curve.
