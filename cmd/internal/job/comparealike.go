@@ -34,9 +34,9 @@ func (ds differences) failure(ref, cand *report.Sheet) error {
 // (judgement).
 const otherDrain = 0.05
 
-// otherwiseWarm is the difference of temperature that is worth a word: 1 to 3 mV at the
+// otherTemp is the difference of temperature that is worth a word: 1 to 3 mV at the
 // usual -2 to -5 mV/K.
-const otherwiseWarm = 0.5 // K
+const otherTemp = 0.5 // K
 
 // unlikeLots says in what two lots were not measured alike so that their gate
 // voltages may not be compared: circuit, drain voltage, dc or pulsed, currents of
@@ -102,7 +102,7 @@ func unlikeLots(ref, cand *report.Sheet, by fit.Key, corrected bool) (out differ
 		warn(fit.CodeUnlikeConditions, "the temperature of lot %s is not known, so that what it shifts is not known either", name)
 	case math.Abs(d) > warmer && !corrected:
 		out = append(out, difference{"temperature", degrees(r.temp), degrees(c.temp), "--tempco -4mV/K takes a slope that you know off the shift"})
-	case math.Abs(d) > otherwiseWarm && !corrected:
+	case math.Abs(d) > otherTemp && !corrected:
 		warn(fit.CodeUnlikeConditions, "lot %s was %.2g K %s: with the usual -2 to -5 mV/K that alone shifts it by %.1g to %.2g mV; --tempco takes it off",
 			cand.Lot.Name, math.Abs(d), map[bool]string{true: "warmer", false: "colder"}[d > 0], 2*math.Abs(d), 5*math.Abs(d))
 	}
