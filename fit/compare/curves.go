@@ -13,8 +13,8 @@ const (
 	// mostCarriedOn is the share of devices of a lot whose curves may end before a
 	// current that is still compared.
 	mostCarriedOn = 0.2
-	// bandDraws are drawn for the critical value: its own error is below 0.02.
-	bandDraws = 40_000
+	// bandDraws are drawn for the critical value: its own error is about 0.015.
+	bandDraws = 20_000
 	bandSeed  = 20260401
 )
 

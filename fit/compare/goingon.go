@@ -158,20 +158,13 @@ func (c *comparing) reAdjust(b biases) Option {
 }
 
 // nineteenOfTwenty is the interval that holds 95 % of a normal lot with 95 %
-// confidence: mean ± k s,
-//
-//	k = z(0.975) √((n-1)(1+1/n)/χ²(0.05, n-1))
-//
-// Source: Howe, "Two-sided tolerance limits for normal populations: some
-// improvements", Journal of the American Statistical Association 64 (1969) 610-620
-// (from memory). Checked: TestNineteenOfTwenty.
+// confidence, see [stats.NormalToleranceFactor].
 func nineteenOfTwenty(v []float64) (low, high float64, ok bool) {
-	n := float64(len(v))
-	if n < 8 {
+	if len(v) < 8 {
 		return 0, 0, false
 	}
 	m, sd := stats.MeanSD(v)
-	k := stats.NormalQuantile(0.975) * math.Sqrt((n-1)*(1+1/n)/stats.ChiSquareQuantile(0.05, n-1))
+	k := stats.NormalToleranceFactor(len(v), 0.95, 0.95)
 	return m - k*sd, m + k*sd, true
 }
 

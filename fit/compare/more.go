@@ -82,7 +82,11 @@ func enough(margin, scatter, lots, u float64) int {
 		e := estimate{}
 		sd := scatter * winsorised(n)
 		for range int(lots) {
-			e.with(sd*perSD(n), float64(n-2*cut(n)-1))
+			df := float64(n - 2*cut(n) - 1)
+			if lots == 1 {
+				df *= 1 - float64(cut(n))/float64(n) // as within has them
+			}
+			e.with(sd*perSD(n), df)
 		}
 		e.with(u, math.Inf(1))
 		return tells(margin/e.se(), e.df())

@@ -42,6 +42,10 @@ func (e *estimate) with(u, nu float64) {
 // between is the difference of two trimmed means (Yuen's test), without anything
 // that the lots have in common. NaN where a trimmed mean could not be had.
 //
+// With lots of one size false differences come in 4.5 to 5.3 % of cases (6 to 40
+// devices a lot, simulated), with a small one against a large one in more: 6.6 % with
+// 6 against 20, 7.2 % with 6 against 40, 6.1 % with 10 against 40.
+//
 // Source: Yuen, "The two-sample trimmed t for unequal population variances",
 // Biometrika 61 (1974) 165-170. Checked: TestYuenIsThatOfStats, TestSimulated.
 func between(ref, cand stats.Trimmed) estimate {
@@ -54,9 +58,15 @@ func between(ref, cand stats.Trimmed) estimate {
 	return e
 }
 
-// within is the trimmed mean of differences of pairs (Tukey and McLaughlin).
+// within is the trimmed mean of differences of pairs (Tukey and McLaughlin), with
+// fewer degrees of freedom than theirs, h - 1: times the share 1 - g/n, g of n values
+// cut at either end. The winsorised variance of normal values scatters as one of so
+// many degrees of freedom does (2 E²/Var by simulation, 5 to 40 values, to 4 %), and
+// with h - 1 false differences come in 6.2 % of cases for 6 pairs.
+//
+// Checked: TestSimulatedPairs.
 func within(d stats.Trimmed) estimate {
 	e := estimate{shift: d.Mean}
-	e.with(d.SE, d.DF)
+	e.with(d.SE, d.DF*(1-float64(d.Cut)/float64(d.N)))
 	return e
 }

@@ -21,7 +21,7 @@ func (c *comparing) decide() {
 	} else {
 		c.decideByMargin()
 	}
-	o.Sentence += c.offWords() + c.populationWords()
+	o.Sentence += c.offWords() + c.pairWords() + c.populationWords()
 }
 
 // decideByZero is the verdict without a margin.
@@ -76,6 +76,15 @@ func (c *comparing) offWords() string {
 			shiftWords(o.ForTemp), c.cand.lot.Temp, c.ref.lot.Temp, signed(c.opt.Tempco), shiftWords(o.Raw))
 	}
 	return ""
+}
+
+// pairWords says what the pairs alone show where the interval holds more than them.
+func (c *comparing) pairWords() string {
+	if c.pairs == nil || !(c.out.Common.U > 0) {
+		return ""
+	}
+	own := c.pairs.out.Own
+	return fmt.Sprintf("; the %d pairs alone, without what the bench adds, say %s (%s)", c.pairs.out.Pairs, shiftWords(own.Value), rangeWords(own.Low, own.High))
 }
 
 // populationWords says where a lot is two.
