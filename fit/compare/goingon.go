@@ -158,13 +158,13 @@ func (c *comparing) reAdjust(b biases) Option {
 }
 
 // nineteenOfTwenty is the interval that holds 95 % of a normal lot with 95 %
-// confidence, see [stats.NormalToleranceFactor].
+// confidence, see [stats.ToleranceFactorTwoSided].
 func nineteenOfTwenty(v []float64) (low, high float64, ok bool) {
 	if len(v) < 8 {
 		return 0, 0, false
 	}
 	m, sd := stats.MeanSD(v)
-	k := stats.NormalToleranceFactor(len(v), 0.95, 0.95)
+	k := stats.ToleranceFactorTwoSided(len(v), 0.95, 0.95)
 	return m - k*sd, m + k*sd, true
 }
 
