@@ -11,6 +11,7 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/compare"
 	"gatesill/report"
+	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -108,7 +109,11 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	}
 	cl := report.ComparedLots{Reference: &ref, Candidates: sheets}
 	if len(sheets) > 1 {
-		trend, err := compare.TrendOf(inTime(&ref, sheets), optionsOf(&ref, by, rq))
+		lots := []compare.Lot{comparedLot(&ref)}
+		for i := range sheets {
+			lots = append(lots, comparedLot(&sheets[i]))
+		}
+		trend, err := compare.TrendOf(lots, optionsOf(&ref, by, rq))
 		if err != nil {
 			return failed("", "the run of lots: %w", err)
 		}
@@ -273,13 +278,39 @@ func limitsOf(s *report.Sheet, by fit.Key) (low, high float64) {
 	return s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
 }
 
-// inTime gives all lots for the run of lots.
-func inTime(ref *report.Sheet, cands []report.Sheet) []compare.Lot {
-	lots := []compare.Lot{comparedLot(ref)}
-	for i := range cands {
-		lots = append(lots, comparedLot(&cands[i]))
+// runOfLots lays the lots of the part out in time: the two that were compared, and
+// every other that was measured as they were; nil where there is no other.
+func (e *Env) runOfLots(ctx context.Context, ref, cand *report.Sheet, by fit.Key, o SheetOptions) (*compare.Trend, error) {
+	var names []string
+	if err := e.view(ctx, func(tx *store.Tx) (err error) {
+		names, err = tx.LotsOfPart(ref.Part.ID)
+		return err
+	}); err != nil {
+		return nil, err
 	}
-	return lots
+	lots := []compare.Lot{comparedLot(ref), comparedLot(cand)}
+	for _, name := range names {
+		if name == ref.Lot.Name || name == cand.Lot.Name {
+			continue
+		}
+		s, err := e.candidateSheet(ctx, ref, name, o)
+		if err != nil {
+			return nil, err
+		}
+		if differ, _ := unlikeLots(ref, &s, by, false); differ == nil && hasAny(&s, by) {
+			lots = append(lots, comparedLot(&s))
+		} else {
+			e.detail("lot %s is not in the run of lots: it was not measured as lot %s was", report.Clean(name), report.Clean(ref.Lot.Name))
+		}
+	}
+	if len(lots) < 3 {
+		return nil, nil
+	}
+	t, err := compare.TrendOf(lots, optionsOf(ref, by, CompareRequest{Level: 95}))
+	if err != nil {
+		return nil, failed("", "the run of lots: %w", err)
+	}
+	return &t, nil
 }
 
 // alikeParts refuses lots of different parts. A lot for which no part was named
