@@ -1,10 +1,6 @@
 package stats
 
-import (
-	"math"
-
-	"gonum.org/v1/gonum/stat/distuv"
-)
+import "math"
 
 // ModifiedZ gives 0.6745 (x - median) / MAD for every value of x, in its order;
 // NaN or ±Inf where MAD is 0.
@@ -48,17 +44,6 @@ func FencesOf(x []float64, rule QuantileRule) Fences {
 		}
 	}
 	return f
-}
-
-// UpperT is the value that Student's t with df degrees of freedom exceeds with
-// probability p (0 < p < 1); NaN outside, and for df <= 0. Below p = 1e-10 it is
-// good to five digits only.
-func UpperT(p, df float64) float64 {
-	if !(p > 0 && p < 1) || !(df > 0) {
-		return math.NaN()
-	}
-	// The lower tail keeps its digits where 1-p would lose them.
-	return -distuv.StudentsT{Mu: 0, Sigma: 1, Nu: df}.Quantile(p)
 }
 
 // Grubbs is max |x - mean| / sd, and the index of the value that has it; NaN and

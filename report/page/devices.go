@@ -103,6 +103,9 @@ func (v *view) devices(k *known) {
 		}
 		return deviceCell{Class: "why"}
 	})
+	if judged := k.judgements(); judged != nil {
+		column(deviceHead{Text: "verdict"}, func(_ int, d *report.Device) deviceCell { return verdictCell(judged[d.Name]) })
+	}
 	if packages {
 		column(deviceHead{Text: "package"}, func(_ int, d *report.Device) deviceCell {
 			return orDash(strings.TrimSpace(d.Package + " " + d.Side))

@@ -264,7 +264,11 @@ func (v *view) rules(k *known) {
 	} else {
 		add("Data-sheet limits of V_GS(th): %s.", report.NotGiven)
 	}
-	add("Guard band at a limit: %s.", orNotGiven(report.AmountWords(k.Sheet.Lot.Guard)))
+	if k.Spec != nil && k.Spec.Why == "" {
+		add("Rule at a limit: %s.", k.GuardRule())
+	} else {
+		add("Guard band at a limit: %s.", orNotGiven(report.AmountWords(k.Sheet.Lot.Guard)))
+	}
 	margin := orNotGiven(report.AmountWords(k.Sheet.Lot.Margin))
 	if at := k.Sheet.Lot.MarginSetAt; at != "" && !k.Sheet.Lot.Margin.IsZero() {
 		margin += ", set " + report.Clean(at)

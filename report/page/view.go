@@ -32,6 +32,8 @@ type view struct {
 	Spread     *table
 	Limits     *table
 	Groups     []group // the two populations, where there are two
+	GroupNote  template.HTML
+	Spec       *specView // nil: the part has no limits
 	Bins       *table
 	Unsorted   []group // in no bin, by reason
 	Devices    deviceTable
@@ -177,6 +179,7 @@ func newView(s *report.Sheet) *view {
 	v.figures(k)
 	v.spread(k)
 	v.bins(k)
+	v.specification(k)
 	v.devices(k)
 	v.flags(k)
 	v.leftOut(k)

@@ -192,6 +192,7 @@ var unitSpellings = map[string][]string{
 	"degC": {"degC", "\u00b0C", "\u2103", "C"},
 	"K/W":  {"K/W", "\u00b0C/W", "degC/W", "C/W"},
 	"Hz":   {"Hz"},
+	"V/K":  {"V/K", "V/degC", "V/\u00b0C"},
 }
 
 // prefixes lists the SI prefixes taken, with their powers of ten. The three
