@@ -84,7 +84,7 @@ func Compared(reference, candidate report.Sheet, o Against) report.Compared {
 		{Name: "send back", Text: "no rule of yours is broken", Rule: "outside-margin: not met"},
 	}
 	if o.Paired {
-		c.Paired = &compare.Paired{Pairs: min(c.Counts[0].WithValue, c.Counts[1].WithValue), Why: "34 serials stand in both lots and their values go together", OnlyRef: []string{"D39"}, OnlyNew: []string{"X1", "X2"}, SD: 0.0011}
+		c.Paired = &compare.Paired{Pairs: min(c.Counts[0].WithValue, c.Counts[1].WithValue), Why: "34 serials stand in both lots and their values go together", OnlyRef: []string{"D39"}, OnlyNew: []string{"X1", "X2"}, SD: 0.0011, Own: compare.Interval{Value: c.Shift + 0.002, Low: c.Shift + 0.001, High: c.Shift + 0.003}}
 		c.Raw = c.Shift + 0.002
 		c.Common = compare.Common{U: 0.0004, Basis: "control parts", Controls: 2, Offset: -0.002, OffsetU: 0.0004}
 	}
