@@ -232,7 +232,7 @@ func (p *pair) says(d *compared) {
 		if c.Test != "" {
 			text += ". By " + c.Test
 			if isNumber(c.DF) {
-				text += fmt.Sprintf(", %.3g degrees of freedom", c.DF)
+				text += ", " + degrees(c.DF) + " degrees of freedom"
 			}
 			if isNumber(c.P) {
 				text += ", p " + equals(report.ProbabilityWords(c.P))
@@ -261,23 +261,7 @@ func (p *pair) says(d *compared) {
 	if b := c.Curves; b != nil {
 		say("whole curves", "%s", report.Sentence(b.Text))
 	}
-	if g := c.Gain; g != nil {
-		text := ""
-		if isNumber(g.Percent.Value) {
-			text = fmt.Sprintf("%s of this lot against the reference: %+.2g %%", report.KeyOf(g.Key).Name, g.Percent.Value)
-			if isNumber(g.Percent.Low) && isNumber(g.Percent.High) {
-				text += fmt.Sprintf(", %s interval %+.2g %% to %+.2g %%", percent(c.Level), g.Percent.Low, g.Percent.High)
-			}
-			text += fmt.Sprintf(" (n = %d and %d; p %s)", g.N[0], g.N[1], equals(report.ProbabilityWords(g.P)))
-			if g.Adjusted {
-				text += ", at equal threshold by the common slope of gain on threshold"
-			} else {
-				text += ", not adjusted for the threshold"
-			}
-			text = report.Sentence(text) + " "
-		}
-		say("gain at equal threshold", "%s%s", text, report.Sentence(g.Text))
-	}
+	p.gain(say)
 	p.populations(say)
 	if q := c.Paired; q != nil {
 		text := fmt.Sprintf("By serial, %s. %s", plural(q.Pairs, "pair"), report.Sentence(q.Why))
@@ -292,6 +276,14 @@ func (p *pair) says(d *compared) {
 	} else {
 		say("pairing", "None: the devices of the two lots are taken as different ones.")
 	}
+}
+
+// degrees writes degrees of freedom with three digits, large ones whole.
+func degrees(df float64) string {
+	if df >= 100 && df < 1e15 {
+		return strconv.FormatFloat(df, 'f', 0, 64)
+	}
+	return strconv.FormatFloat(df, 'g', 3, 64)
 }
 
 // equals puts a sign of equality before a number that has no sign of its own.
@@ -387,6 +379,23 @@ func ties(n int) string {
 		return "1 control part ties"
 	}
 	return strconv.Itoa(n) + " control parts tie"
+}
+
+// gain tells of the drive strength, in the comparison's own sentence.
+func (p *pair) gain(say func(head, format string, args ...any)) {
+	g := p.c.Gain
+	if g == nil {
+		return
+	}
+	head, how := "gain", "not adjusted for the threshold"
+	if g.Adjusted {
+		head, how = "gain at equal threshold", "adjusted by the common slope of gain on threshold"
+	}
+	text := report.Sentence(g.Text)
+	if text == "" {
+		text = report.Sentence(fmt.Sprintf("%s %s", report.KeyOf(g.Key).Name, report.ShiftWords(g.Percent.Value, g.Percent.Low, g.Percent.High, "%")))
+	}
+	say(head, "%s By the %s, n = %d and %d, %s, p %s.", text, report.KeyOf(g.Key).Name, g.N[0], g.N[1], how, equals(report.ProbabilityWords(g.P)))
 }
 
 func (p *pair) populations(say func(head, format string, args ...any)) {
