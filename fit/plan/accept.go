@@ -36,18 +36,20 @@ type OCPoint struct{ Bad, Accepts float64 }
 // Accept is the answer to an [AcceptRequest].
 type Accept struct {
 	AcceptRequest
-	Plan      stats.VariablesPlan
-	AtGood    float64   // chance of accepting at Good; NaN
-	AtBad     float64   // chance of accepting at Bad; NaN
-	Often     float64   // share of bad parts with which 95 of 100 lots are accepted
-	Seldom    float64   // share of bad parts with which 10 of 100 lots are
-	Curve     []OCPoint // operating characteristic, by rising share from 0
-	CountN    int       // parts of a plan that counts bad ones instead, with the same two points; 0: none, or not asked
-	CountMost int       // and how many may be bad
-	Decision  Decision
-	Judgement stats.Judgement
-	Undecided string // why there is no decision, ""
-	Normality Normality
+	Needed     int                 // parts that the two points ask for, or N
+	Plan       stats.VariablesPlan // for the sample at hand where that is larger than Needed
+	AtGood     float64             // chance of accepting at Good; NaN
+	AtBad      float64             // chance of accepting at Bad; NaN
+	Often      float64             // share of bad parts with which 95 of 100 lots are accepted
+	Seldom     float64             // share of bad parts with which 10 of 100 lots are
+	Curve      []OCPoint           // operating characteristic, by rising share from 0
+	CountN     int                 // parts of a plan that counts bad ones instead, with the same two points; 0: none, or not asked
+	CountMost  int                 // and how many may be bad
+	Decision   Decision
+	Judgement  stats.Judgement
+	Undecided  string // why there is no decision, ""
+	Normality  Normality
+	SigmaDoubt bool // the sample spreads more than the sigma that is known lets expect (chance below 1 %)
 }
 
 // ToAccept answers an [AcceptRequest]. A sample of fewer parts than the plan wants
