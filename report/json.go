@@ -284,10 +284,10 @@ func rowsOf[T any](list []T) rows {
 
 // SpreadJSON writes what `spread --json` gives.
 func SpreadJSON(w io.Writer, s Sheet) error {
-	return writeObject(w,
-		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"populations", max(1, s.Spread.Populations)},
-		member{"split", splitDocOf(s.Spread.Split)}, member{"summary", summaryDocs(&s.Spread)}, member{"limits", limitDocs(&s.Spread)},
-		member{"specification", specDocOf(s.Spec)}, member{"devices", rowsOf(verdictDocs(&s))})
+	return writeObject(w, append([]member{
+		{"schema", Schema}, {"lot", s.Lot.Name}, {"populations", max(1, s.Spread.Populations)},
+		{"split", splitDocOf(s.Spread.Split)}, {"summary", summaryDocs(&s.Spread)}, {"limits", limitDocs(&s.Spread)},
+		{"specification", specDocOf(s.Spec)}, {"devices", rowsOf(verdictDocs(&s))}}, heldMembers(&s, s.SortedBy)...)...)
 }
 
 type placedDoc struct {
@@ -359,10 +359,10 @@ func SortJSON(w io.Writer, s Sheet) error {
 	if s.Sorting == nil {
 		return fmt.Errorf("lot %q: %w", s.Lot.Name, ErrNotSorted)
 	}
-	return writeObject(w,
-		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"by", string(s.Sorting.By)},
-		member{"smallest_honest_width_" + sortUnit(s.Sorting.By), number(s.Sorting.SmallestWidth)},
-		member{"bins", rowsOf(binDocs(s.Sorting))}, member{"unsorted", rowsOf(unsortedDocs(&s))})
+	return writeObject(w, append([]member{
+		{"schema", Schema}, {"lot", s.Lot.Name}, {"by", string(s.Sorting.By)},
+		{"smallest_honest_width_" + sortUnit(s.Sorting.By), number(s.Sorting.SmallestWidth)},
+		{"bins", rowsOf(binDocs(s.Sorting))}, {"unsorted", rowsOf(unsortedDocs(&s))}}, heldMembers(&s, s.Sorting.By)...)...)
 }
 
 // writeLine writes one object of a stream, in one line.

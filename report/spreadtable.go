@@ -22,6 +22,7 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		by = s.SortedBy
 	}
 	p.line("%s", s.SortedPhrase(by))
+	repeatabilityLine(p, s, by, style)
 	keys := spreadKeys(s.Spread)
 	if len(keys) == 0 {
 		p.line("No device of the lot has a value: there is no spread to show.")

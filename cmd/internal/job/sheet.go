@@ -23,6 +23,7 @@ import (
 // SheetOptions are the choices of [Env.Sheet].
 type SheetOptions struct {
 	At       record.Num // A, test current; unknown: the part's, the spot list's own, else 1 mA
+	Idle     record.Num // A, idle current; unknown: the part's, else what a spot list tells
 	Method   string     // "auto", "current", "sqrt", "linear", "ratio", "curve"
 	Limit    float64    // spread limit in robust spreads, 0: by the lot's size
 	Devices  []string   // only these, empty: all
@@ -65,11 +66,14 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	}
 	s.Version, s.Codes, s.Budget = e.Version, fit.Codes, o.Budget
 	placeSweeps(&s, sweeps)
-	currents(&s, o.At)
+	currents(&s, o.At, o.Idle)
 	start := time.Now()
 	digits := lastDigitsOf(&s)
 	if err := fitSheet(ctx, &s, o.Method, digits); err != nil {
 		return s, err
+	}
+	if err := takeRepeatability(ctx, db, &s, o.Method); err != nil {
+		return s, storeFailure(err)
 	}
 	e.detail("%s of %s fitted in %v", count(len(sweeps), "sweep"), count(len(s.Devices), "device"), time.Since(start).Round(time.Millisecond))
 	// Only now: a device is fitted the same whether it is asked for alone or not.
