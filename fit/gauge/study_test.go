@@ -303,7 +303,7 @@ func TestUneven(t *testing.T) {
 	r := rand.New(rand.NewPCG(9, 6))
 	b := bench{devices: 10, operators: 1, rounds: 3, lot: 50e-3, repeat: 1e-3}
 	false1, found := 0, 0
-	runs := 800
+	runs := 500
 	if os.Getenv("GATESILL_LONG") != "" {
 		runs = 20_000
 	}
