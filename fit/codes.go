@@ -53,9 +53,11 @@ const (
 	CodeOffNotRead         = "off-not-read"    // no reading at the off voltage
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
-	CodeLotShape           = "lot-shape"        // read along the lot's median curve
-	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
-	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
+	CodePartNotNamed       = "part-not-named"       // lots compared of which one has no part of a name
+	CodeLotShape           = "lot-shape"            // read along the lot's median curve
+	CodeMethodNotValid     = "method-not-valid"     // no value by the method asked for
+	CodeOutsideLimits      = "outside-limits"       // outside the data sheet's limits
+	CodeCommonUnknown      = "common-error-unknown" // what the bench adds to the difference of two lots
 
 	// Of the bench, by devices put in again.
 	CodeTooFewRepeats   = "too-few-repeats"
@@ -217,6 +219,9 @@ var Codes = []CodeInfo{
 	{CodeUnlikeConditions,
 		"The values were taken under unlike conditions.",
 		"Compare only values of the same circuit, current, temperature and definition."},
+	{CodePartNotNamed,
+		"No part is named for a lot that is compared, so that it is not known whether both are of one part.",
+		"Name it with gatesill lot edit LOT --part NAME."},
 	{CodeLotShape,
 		"The device has too few points of its own there, and was read along the median shape of the lot's curves.",
 		"Take more points around the current asked for; do not trust the value to show another die."},
@@ -256,6 +261,9 @@ var Codes = []CodeInfo{
 	{CodeAllShifted,
 		"All devices together read otherwise than at their first date.",
 		"Compare the temperatures, give the coefficient with --tempco, and measure a control part: it is the bench, not the parts."},
+	{CodeCommonUnknown,
+		"Lots were compared that were not measured in one session with the same meters, and what that adds to their difference is not known.",
+		"Give the meters' accuracy in a bench file, measure some control parts with both lots, or measure both in one session."},
 	{CodeExcluded,
 		"The device was left out of every statistic by hand.",
 		"See why with gatesill device show; gatesill device include lets it count again."},

@@ -192,8 +192,8 @@ func percent(x float64) string {
 	return fixed(x, max(0, min(1, significant(x, 2)))) + " %"
 }
 
-// signedVolts writes a difference with its sign, in mV to a tenth.
-func signedVolts(x float64) string {
+// signedMillivolts writes a difference with its sign, in mV to a tenth.
+func signedMillivolts(x float64) string {
 	if !isNumber(x) {
 		return NotAvailable
 	}
@@ -214,7 +214,7 @@ func gaugeLevels(p *printer, g Gauge, style Style) {
 		p.line("%s", style.paint(fmt.Sprintf("By %s", f.Name), bold))
 		var names, ns, offs []string
 		for _, l := range f.Levels {
-			names, ns, offs = append(names, Clean(l.Name)), append(ns, itoa(l.Measurings)), append(offs, signedVolts(l.Off))
+			names, ns, offs = append(names, Clean(l.Name)), append(ns, itoa(l.Measurings)), append(offs, signedMillivolts(l.Off))
 		}
 		p.grid(grid{style: style, cols: []column{
 			{head: f.Name, cells: names}, {head: "n", cells: ns, right: true}, {head: "off the mean", unit: "mV", cells: offs, right: true},
@@ -347,7 +347,7 @@ func changeGrid(s *Sheet, h *gauge.History, style Style) grid {
 	changes := inOrder(s, h.Changes)
 	for _, c := range changes {
 		names, values = append(names, Clean(c.Device)), append(values, c.First)
-		raws, corrs, owns = append(raws, signedVolts(c.Raw)), append(corrs, signedVolts(c.Corrected)), append(owns, signedVolts(c.Own))
+		raws, corrs, owns = append(raws, signedMillivolts(c.Raw)), append(corrs, signedMillivolts(c.Corrected)), append(owns, signedMillivolts(c.Own))
 		mark := ""
 		if c.Changed {
 			mark = style.paint("changed or mixed up", red)

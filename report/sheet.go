@@ -37,12 +37,13 @@ type Sheet struct {
 	Spread lot.Spread
 	Spec   *lot.Specification // nil: the part has no limits
 
-	GuardSetAt, SendBackSetAt string       // when the lot's guard band and its rule to send back were set last, stamps as of [record.Stamp]; "": never
-	Sorting                   *lot.Sorting // nil: not sorted
-	Compared                  *Compared    // nil: not compared with another lot
-	Version                   string       // of the program
-	Hash                      string       // SHA-256 over the canonical data, hex
-	Latest                    string       // latest time stamp in the data: the page has no present time
+	GuardSetAt, SendBackSetAt string         // when the lot's guard band and its rule to send back were set last, stamps as of [record.Stamp]; "": never
+	Sorting                   *lot.Sorting   // nil: not sorted
+	Compared                  *Compared      // nil: not compared with another lot
+	Trend                     *compare.Trend // the lots of the part in the order of time; nil: not gathered
+	Version                   string         // of the program
+	Hash                      string         // SHA-256 over the canonical data, hex
+	Latest                    string         // latest time stamp in the data: the page has no present time
 
 	Codes []fit.CodeInfo // explains the warning codes; nil: they are shown without advice
 }
@@ -51,6 +52,14 @@ type Sheet struct {
 type Compared struct {
 	Reference *Sheet
 	compare.Comparison
+	MarginFrom string // where the margin comes from and how it became volts, in words; "" none
+}
+
+// ComparedLots is one lot or several against a reference lot.
+type ComparedLots struct {
+	Reference  *Sheet
+	Candidates []Sheet        // each with Compared, in the order asked for
+	Trend      *compare.Trend // of all lots, the reference among them; nil with one candidate
 }
 
 // Verdicts gives the verdict of the spread on each device, by name.

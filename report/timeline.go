@@ -22,7 +22,7 @@ func deviceTimeline(p *printer, f *DeviceFile, s *Sheet, style Style) {
 			t, warm = fixed(m.Temp, 1), true
 		}
 		known = known || isNumber(m.Corrected)
-		temps, raw, corrected = append(temps, t), append(raw, signedVolts(m.Raw)), append(corrected, signedVolts(m.Corrected))
+		temps, raw, corrected = append(temps, t), append(raw, signedMillivolts(m.Raw)), append(corrected, signedMillivolts(m.Corrected))
 	}
 	cells, unit := numbersAt("V", values, nil, readTo(values), func(int) string { return NotAvailable })
 	g := grid{style: style, cols: []column{
@@ -35,7 +35,7 @@ func deviceTimeline(p *printer, f *DeviceFile, s *Sheet, style Style) {
 	p.grid(g)
 	switch {
 	case known:
-		wrapped(p, "", "  ", "corrected: less what "+signedVolts(f.Tempco)+" mV/K explains.", style.Width)
+		wrapped(p, "", "  ", "corrected: less what "+signedMillivolts(f.Tempco)+" mV/K explains.", style.Width)
 	case warm && math.IsNaN(f.Tempco):
 		wrapped(p, "", "  ", "Not corrected for temperature: give the coefficient of the part, for instance --tempco -4mV/K.", style.Width)
 	}

@@ -3,7 +3,6 @@ package lot
 import (
 	"fmt"
 	"math"
-	"slices"
 
 	"gatesill/fit/stats"
 )
@@ -83,7 +82,7 @@ func (s *sample) of() string {
 // limit; with one limit it is that side alone.
 //
 // Declined below 25 devices, in two populations, and where the lot is far from
-// normal. Source: ISO 22514-2 (from memory); the limit: [stats.CapabilityLower], of
+// normal. Source: ISO 22514-2 (from memory); the limit: [stats.CpkBoundOneLimit], of
 // the nearer side. Checked: TestCapabilityOfLots.
 func capabilityOf(s *sample, least, most float64, populations int) Capability {
 	nan := math.NaN()
@@ -110,7 +109,7 @@ func capabilityOf(s *sample, least, most float64, populations int) Capability {
 			c.Value = v
 		}
 	}
-	c.Lower = stats.CapabilityLower(c.Value, c.N, specLevel)
+	c.Lower = stats.CpkBoundOneLimit(c.Value, c.N, specLevel)
 	return c
 }
 
@@ -137,14 +136,13 @@ func bandOfLot(s *sample, populations int) ToleranceBand {
 	}
 	p := stats.AndersonDarling(s.x).P
 	if !(p < farFromNormal) {
-		b.Kind, b.Factor = BandNormal, stats.NormalToleranceFactor(b.N, specShare, specLevel)
+		b.Kind, b.Factor = BandNormal, stats.ToleranceFactorTwoSided(b.N, specShare, specLevel)
 		b.Low, b.High = mean-b.Factor*sd, mean+b.Factor*sd
 		return b
 	}
-	if r := stats.ToleranceRank(b.N, specShare, specLevel); r > 0 {
-		sorted := slices.Sorted(slices.Values(s.x))
+	if t := stats.FreeTolerance(s.x, stats.Both, specShare, specLevel); !math.IsNaN(t.Low) {
 		b.Kind = BandFree
-		b.Low, b.High = sorted[r-1], sorted[b.N-r]
+		b.Low, b.High = t.Low, t.High
 		return b
 	}
 	b.Declined = fmt.Sprintf("the lot is far from normal (Anderson-Darling p = %s), and without that %d devices are needed", short(p), freeFewest)
@@ -163,6 +161,6 @@ func outsideOf(s *sample, least, most float64) OutsideShare {
 			o.Count++
 		}
 	}
-	o.Upper = stats.ShareUpper(o.Count, o.N, specLevel)
+	o.Upper = stats.BadBound(o.Count, o.N, specLevel)
 	return o
 }

@@ -79,9 +79,11 @@ func TestFarArguments(t *testing.T) {
 						t.Errorf("%s of %g, %g, %g: %g", name, a, b, c, v)
 					}
 				}
-				if a > 1e-200 {
+				if a < 1 {
 					_ = FQuantile(a, b, c)
-					NoncentralTQuantile(a, b, c)
+				}
+				if a == 1e-17 || a == 0.3 {
+					_ = NoncentralTQuantile(a, b, c)
 				}
 			}
 		}
@@ -120,7 +122,7 @@ func TestEquivalencePower(t *testing.T) {
 
 	// By drawing pairs and asking the test itself.
 	rng := rand.New(rand.NewPCG(21, 22))
-	const runs = 20000
+	const runs = 8000
 	shown := 0
 	x, zero := make([]float64, 12), make([]float64, 12)
 	for range runs {
@@ -165,7 +167,7 @@ func TestWelchPower(t *testing.T) {
 
 	// By drawing: the test itself, sizes and spreads unequal.
 	rng := rand.New(rand.NewPCG(23, 24))
-	const runs = 20000
+	const runs = 8000
 	found, shown := 0, 0
 	x, y := make([]float64, 6), make([]float64, 15)
 	for range runs {

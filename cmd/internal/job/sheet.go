@@ -23,6 +23,7 @@ import (
 // SheetOptions are the choices of [Env.Sheet].
 type SheetOptions struct {
 	At       record.Num // A, test current; unknown: the part's, the spot list's own, else 1 mA
+	Idle     record.Num // A, idle current; unknown: the part's, else what a spot list tells
 	Method   string     // "auto", "current", "sqrt", "linear", "ratio", "curve"
 	Limit    float64    // spread limit in robust spreads, 0: by the lot's size
 	Devices  []string   // only these, empty: all
@@ -65,7 +66,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	}
 	s.Version, s.Codes, s.Budget = e.Version, fit.Codes, o.Budget
 	placeSweeps(&s, sweeps)
-	currents(&s, o.At)
+	currents(&s, o.At, o.Idle)
 	start := time.Now()
 	digits := lastDigitsOf(&s)
 	if err := fitSheet(ctx, &s, o.Method, digits); err != nil {
