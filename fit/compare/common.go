@@ -218,12 +218,12 @@ func (c *comparing) ties() ties {
 		return t
 	}
 	t.offset = stats.Mean(d)
-	reading := c.opt.Repeatability
+	reading := c.least // not less than what the lots' own readings are uncertain by
 	if len(u) > 0 {
-		m := stats.Median(u)
-		if !(reading >= m) {
-			reading = m
-		}
+		reading = math.Max(reading, stats.Median(u))
+	}
+	if c.opt.Repeatability > reading {
+		reading = c.opt.Repeatability
 	}
 	if reading > 0 {
 		t.u = math.Sqrt2 * reading / math.Sqrt(float64(t.n))

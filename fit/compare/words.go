@@ -4,8 +4,6 @@ import (
 	"fmt"
 	"math"
 	"strconv"
-
-	"gatesill/fit"
 )
 
 // volts writes a gate voltage.
@@ -81,6 +79,11 @@ func stand(n int, one, more string) string {
 
 func devices(n int) string { return stand(n, "device", "devices") }
 
+// neverReach says that so many devices do not come to the current.
+func neverReach(n int) string {
+	return stand(n, "device never reaches", "devices never reach") + " the current"
+}
+
 // higher says which way a shift goes: more gate voltage or less.
 func (c *comparing) higher(shift float64) string {
 	if c.ref.lot.PChannel {
@@ -90,12 +93,4 @@ func (c *comparing) higher(shift float64) string {
 		return "less"
 	}
 	return "more"
-}
-
-// symbol is the quantity as short as it can be.
-func symbol(k fit.Key) string {
-	if k == fit.KeyVgsIdle {
-		return "gate bias"
-	}
-	return "V_GS(th)"
 }
