@@ -76,7 +76,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	if c.No() {
 		sgr = red
 	}
-	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.reasonWords())), style.Width)
+	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.Reason())), style.Width)
 	p.line("")
 	p.grid(countsGrid(s, style))
 	p.line("")

@@ -97,8 +97,8 @@ func (c *ComparedLots) ComparedLine() string {
 	return text + "; a shift is that of the lot minus that of reference lot " + Clean(c.Reference.Lot.Name) + "."
 }
 
-// reasonWords is the sentence of the verdict without the verdict at its head.
-func (c *Compared) reasonWords() string {
+// Reason is the sentence of the verdict without the verdict at its head.
+func (c *Compared) Reason() string {
 	rest, cut := strings.CutPrefix(c.Sentence, string(c.Verdict))
 	if !cut {
 		return c.Sentence

@@ -230,7 +230,7 @@ func gaugeLevels(p *printer, g Gauge, style Style) {
 		if f.With != "" {
 			text += "; " + f.Name + " and " + f.With + " change together and cannot be told apart"
 		}
-		wrapped(p, "", "  ", text+".", style.Width)
+		wrapped(p, "", "  ", text+g.Study.FactorWords()+".", style.Width)
 	}
 }
 

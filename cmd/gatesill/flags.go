@@ -1,6 +1,9 @@
 package main
 
 import (
+	"errors"
+	"fmt"
+	"strconv"
 	"strings"
 
 	"github.com/spf13/pflag"
@@ -54,9 +57,31 @@ func (f shareFlag) Set(text string) error {
 		x /= 100
 	}
 	if x < 0 || x >= 1 {
-		return record.ErrInvalid
+		if !percent && x >= 1 && x < 100 {
+			return fmt.Errorf("from 0 to 100 %%, and %s percent are written %s%%", head, head)
+		}
+		return errors.New("must lie from 0 to 100 %")
 	}
 	*f.dst = record.Known(x)
+	return nil
+}
+
+// countFlag takes a whole number of parts.
+type countFlag struct{ dst *record.Num }
+
+func (f countFlag) String() string {
+	if f.dst == nil {
+		return ""
+	}
+	return f.dst.String()
+}
+func (f countFlag) Type() string { return "NUMBER" }
+func (f countFlag) Set(text string) error {
+	n, err := strconv.Atoi(strings.TrimSpace(text))
+	if err != nil || n < 0 {
+		return errors.New("must be a whole number, 0 or more")
+	}
+	*f.dst = record.Known(float64(n))
 	return nil
 }
 

@@ -93,6 +93,9 @@ func pitmanMorgan(x, y []float64) float64 {
 	if len(x) < 4 || finiteOnly(x) == nil || finiteOnly(y) == nil {
 		return math.NaN()
 	}
+	if !(stats.SD(x) > 0) || !(stats.SD(y) > 0) {
+		return math.NaN()
+	}
 	sum, diff := make([]float64, len(x)), make([]float64, len(x))
 	for i := range x {
 		sum[i], diff[i] = y[i]+x[i], y[i]-x[i]

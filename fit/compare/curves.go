@@ -193,10 +193,10 @@ func (c *comparing) bandWords(b *Band, s *levelShifts, df float64) string {
 		if to > from {
 			apart = fmt.Sprintf("between %s and %s", amps(from), amps(to))
 		}
-		text = fmt.Sprintf("the curves differ %s; the shift is %s %s", apart, rangeWords(least, most), where)
+		text = fmt.Sprintf("the curves differ %s; the shift is %s %s", apart, fromTo(least, most), where)
 	}
 	if len(b.Points) > 1 {
-		text += ", " + parallelWords(b, s, df, c.opt.Level)
+		text += parallelWords(b, s, df, c.opt.Level)
 	}
 	if c.out.ForTemp != 0 {
 		text += "; what was taken off the shift for the temperature is not taken off here, as it is another at every current"
@@ -220,12 +220,19 @@ func parallelWords(b *Band, s *levelShifts, df, level float64) string {
 	k := len(b.Points) - 1
 	d := last.Shift - first.Shift
 	se := math.Sqrt(math.Max(0, s.cov[0][0]+s.cov[k][k]-2*s.cov[0][k]))
-	if se > 0 && math.Abs(d) > stats.UpperT((1-level)/2, df)*se {
-		way := "widens"
-		if math.Abs(last.Shift) < math.Abs(first.Shift) {
-			way = "narrows"
-		}
-		return fmt.Sprintf("and %s with the current, by %s from the lowest to the highest", way, shiftWords(d))
+	switch {
+	case se > 0 && math.Abs(d) > stats.UpperT((1-level)/2, df)*se:
+		return fmt.Sprintf("; it changes with the current, by %s from the lowest to the highest", shiftWords(d))
+	case b.Differs:
+		return "; no change with the current is seen: a parallel shift"
 	}
-	return "and it does not change with the current as far as can be seen (a parallel shift)"
+	return ""
+}
+
+// fromTo writes a range of shifts, or one where they read the same.
+func fromTo(least, most float64) string {
+	if signed(least) == signed(most) {
+		return shiftWords(least)
+	}
+	return rangeWords(least, most)
 }

@@ -60,7 +60,7 @@ func TestBand(t *testing.T) {
 	// Less gain needs more gate voltage the more the current.
 	a, b = curveLots(4, 2, 0.1)
 	c = compareLots(t, a, b, plain())
-	if !strings.Contains(c.Curves.Text, "widens with the current, by +") {
+	if !strings.Contains(c.Curves.Text, "it changes with the current, by +") {
 		t.Error(c.Curves.Text)
 	}
 	t.Log(c.Curves.Text)
@@ -172,7 +172,6 @@ func TestGainAtEqualThreshold(t *testing.T) {
 		t.Fatalf("%+v", c.Gain)
 	}
 	near(t, "equal gm", c.Gain.Percent.Value, 0, 1)
-	// Without thresholds that can be told apart from the bias it is the ratio of means.
 	few := b
 	few.Members = few.Members[:3]
 	if c = compareLots(t, a, few, plain()); c.Gain != nil {

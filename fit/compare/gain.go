@@ -82,6 +82,9 @@ func (c *comparing) gainsOf(k fit.Key) (ref, cand []gained) {
 				method, most = name, m
 			}
 		}
+		if most == 0 {
+			return nil, nil
+		}
 	}
 	collect := func(v *values) (out []gained) {
 		for _, m := range v.of {

@@ -45,10 +45,10 @@ func TestIdleAtOldVoltage(t *testing.T) {
 			t.Error(i.how)
 		}
 	}
-	if i := idleAt(&c, 2.5, 0.25, nan, false); i.beyond != -1 || i.i != 1e-3 {
+	if i := idleAt(&c, 2.5, 0.25, nan, false); i.beyond != -1 || math.Abs(i.i-1e-3) > 1e-12 {
 		t.Errorf("%+v", i)
 	}
-	if i := idleAt(&c, 9, 0.25, nan, false); i.beyond != 1 || i.i != 1 {
+	if i := idleAt(&c, 9, 0.25, nan, false); i.beyond != 1 || math.Abs(i.i-1) > 1e-12 {
 		t.Errorf("%+v", i)
 	}
 	// Transconductance for small changes only.
@@ -76,7 +76,8 @@ func option(t *testing.T, c *Comparison, name string, contains ...string) Option
 	return Option{}
 }
 
-// The numbers of the scenario: its 95/95 band of 3.006 to 3.369 V, trimmers, bins.
+// The numbers of the scenario: its 95/95 band is 3.006 to 3.369 V by Howe's
+// approximation, a millivolt more by the exact factor; trimmers, bins.
 func TestGoingOn(t *testing.T) {
 	a, b := scenarioLots(t)
 	opt := plain()
@@ -84,7 +85,7 @@ func TestGoingOn(t *testing.T) {
 	opt.LimitLow, opt.LimitHigh, opt.SendBack = 2, 4, ByLimits
 	c := compareLots(t, a, b, opt)
 	option(t, &c, TakeAsItIs, "at 3.042 V", "instead of 250 mA", "30 devices by the gain factor given")
-	option(t, &c, ReAdjust, "from 3.064 V to 3.365 V", "from 3.006 V to 3.369 V for 95 %")
+	option(t, &c, ReAdjust, "from 3.064 V to 3.365 V", "from 3.006 V to 3.370 V for 95 %")
 	option(t, &c, ChangeResistor, "move by +139 mV, from 3.042 V to 3.182 V")
 	option(t, &c, SortFirst, "7 bins of 50 mV", "2 of 30 lie within 50 mV of the centre of lot 2431")
 	if o := option(t, &c, SendBack, "is kept", "2.000 V to 4.000 V"); o.Rule != ByLimits {

@@ -14,7 +14,7 @@ import (
 // warnings of each. known is the repeatability of the bench where that comes from
 // elsewhere; the study's own goes before it, where it is enough.
 func FindingOf(ms []Measuring, known Repeatability, tempco float64) Finding {
-	f := Finding{Study: StudyOf(ms)}
+	f := Finding{Study: StudyOf(ms, tempco)}
 	if f.Study.Repeatability.Enough() {
 		known = f.Study.Repeatability
 	}

@@ -25,12 +25,14 @@ const level = 0.95
 // measuring's sd, operators and fixtures included.
 //
 // Inputs: measurings in any order, not modified; those without a value are left
-// out, control parts count for the repeatability but not for the lot. Result: NaN
+// out, control parts count for the repeatability but not for the lot. tempco, V/K (NaN:
+// none): before operators, fixtures and sittings are compared, all values are brought to
+// the temperature of the first, where all are known. Result: NaN
 // where there are no two measurings of a device in one sitting. Source:
 // repeatability and reproducibility by analysis of variance, ISO 5725-2, and the
 // number of categories of measurement system studies (both from memory). Checked:
 // TestStudyByHand, TestStudyIntervals, TestStudyShift.
-func StudyOf(ms []Measuring) Study {
+func StudyOf(ms []Measuring, tempco float64) Study {
 	ms = withValue(ms)
 	s := Study{Categories: -1, SharedBy: math.NaN(), Lot: noEstimate(), Share: noEstimate()}
 	cells := cellsOf(ms)
@@ -41,6 +43,14 @@ func StudyOf(ms []Measuring) Study {
 		s.MoreRepeats = max(0, FewestDF-int(r.DF)-s.MoreDevices)
 	}
 	s.Factors = factors(ms, cells)
+	apart, known := warmth(ms)
+	if corrected, ok := brought(ms, tempco); ok {
+		s.Factors = factors(corrected, cellsOf(corrected))
+		s.AtOneTemp, apart = true, 0
+	} else if !known {
+		apart = math.NaN()
+	}
+	s.TempsApart = apart
 	for i, f := range s.Factors {
 		// Of two that cannot be told apart the first stands for both.
 		if f.Name != "session" && f.SD.Value > 0 && (f.With == "" || i == 0) {
@@ -215,7 +225,7 @@ func (s *Study) warn(ms []Measuring, cells []cell) {
 	}
 	for _, f := range s.Factors {
 		if f.P < 1-level && f.Name != "session" {
-			s.add(fit.CodeOperatorsDiffer, "%ss do not read the same (sd %s, p %s)%s", f.Name, volts(f.SD.Value), pWords(f.P), f.withWords())
+			s.add(fit.CodeOperatorsDiffer, "%ss do not read the same (sd %s, p %s)%s", f.Name, volts(f.SD.Value), pWords(f.P), f.withWords()+s.warmWords())
 		}
 	}
 	if s.Repeatability.Enough() && s.Share.Low > tenth {
@@ -278,4 +288,47 @@ func medianU(ms []Measuring) float64 {
 		}
 	}
 	return stats.Median(us)
+}
+
+// brought takes what the temperature explains off all values, to that of the first;
+// false where there is no coefficient or not all temperatures are known.
+func brought(ms []Measuring, tempco float64) ([]Measuring, bool) {
+	if math.IsNaN(tempco) || len(ms) == 0 || slices.ContainsFunc(ms, func(m Measuring) bool { return math.IsNaN(m.Temp) }) {
+		return nil, false
+	}
+	out := slices.Clone(ms)
+	for i := range out {
+		out[i].Value -= tempco * (out[i].Temp - out[0].Temp)
+	}
+	return out, true
+}
+
+// warmth is the greatest difference of the temperatures, K; false where not all are
+// known.
+func warmth(ms []Measuring) (float64, bool) {
+	low, high := math.Inf(1), math.Inf(-1)
+	for _, m := range ms {
+		if math.IsNaN(m.Temp) {
+			return 0, false
+		}
+		low, high = math.Min(low, m.Temp), math.Max(high, m.Temp)
+	}
+	return math.Max(0, high-low), len(ms) > 0
+}
+
+// warmWords says that sittings lay at unlike temperatures.
+func (s *Study) warmWords() string {
+	if !(s.TempsApart >= 0.5) {
+		return ""
+	}
+	return fmt.Sprintf("; the temperatures lie %.1f K apart and are not corrected for (--tempco)", s.TempsApart)
+}
+
+// FactorWords says beside the factors how the temperatures were dealt with, ""
+// where there is nothing to say.
+func (s *Study) FactorWords() string {
+	if s.AtOneTemp {
+		return "; brought to one temperature"
+	}
+	return s.warmWords()
 }

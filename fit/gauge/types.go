@@ -62,6 +62,8 @@ type Study struct {
 	MoreDevices   int // to be put in again before it is enough; 0: none
 	MoreRepeats   int // insertions wanted besides, of any device that has been in already
 	Factors       []Factor
+	AtOneTemp     bool     // values were brought to one temperature for the factors
+	TempsApart    float64  // K, by how much temperatures differ that were not corrected for; NaN: not all are known
 	Lot           Estimate // V, standard deviation of the devices among each other, without what the bench adds
 	LotDevices    int
 	Share         Estimate // repeatability as a share of the whole spread of single readings in the lot, 0 to 1

@@ -15,6 +15,8 @@ package plan
 import (
 	"fmt"
 	"math"
+
+	"gatesill/fit/stats"
 )
 
 // Answer is what one of the kinds found: a pointer to [Find], [Shift], [Same],
@@ -59,6 +61,12 @@ type Lot struct {
 	Mean   float64 // V
 	SD     float64 // V, between devices
 	Values []float64
+}
+
+// LotOf is a sample of values, V, with their mean and standard deviation.
+func LotOf(name string, values []float64) Lot {
+	mean, sd := stats.MeanSD(values)
+	return Lot{Name: name, N: len(values), Mean: mean, SD: sd, Values: values}
 }
 
 func (l *Lot) given() bool { return l.N > 0 || l.Name != "" }
