@@ -25,7 +25,7 @@ var mayImport = map[string][]string{
 	"fit/gauge":         {"fit", "fit/stats"},
 	"fit/plan":          {"fit/stats"},
 	"report":            {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan"},
-	"report/screen":     {"store/record", "report"},                                                            // the terminal view of a live bench
+	"report/screen":     {"store/record", "report"},                                                                        // the terminal view of a live bench
 	"report/internal":   {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report"}, // invented sheets for tests
 	"report/svg":        {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report", "report/internal/"},
 	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report", "report/svg", "report/internal/"},

@@ -26,6 +26,7 @@ type PlanRequest struct {
 	Margin                                     record.Amount // V, or % or A of the idle current
 	From                                       string        // lot of the store; "": none
 	Output                                     string        // file to draw in; "": none
+	Fail                                       bool          // accept: [ExitNo] unless the lot is accepted
 }
 
 // Plan answers how many parts to measure for a purpose: find, shift, same, cover,
@@ -33,6 +34,12 @@ type PlanRequest struct {
 func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 	if rq.Output != "" && rq.Output != "-" && strings.ToLower(filepath.Ext(rq.Output)) != ".svg" {
 		return Usage("-o plan.svg", "-o %s: the operating characteristic is drawn as .svg", rq.Output)
+	}
+	if rq.Fail && rq.From == "" {
+		return Usage("--from LOT", "--fail: no lot to decide on")
+	}
+	if rq.From == "" && (rq.LimitLow.IsKnown() || rq.LimitHigh.IsKnown()) {
+		return Usage("--from LOT", "--limit-low, --limit-high: no lot to hold against them")
 	}
 	if rq.N.IsKnown() && rq.N.Float() == 0 {
 		return Usage("--n 20", "--n: 0 parts show nothing")
@@ -64,9 +71,14 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 		}
 	}
 	if env.JSON {
-		return report.PlanJSON(env.Out, a)
+		err = report.PlanJSON(env.Out, a)
+	} else {
+		err = report.PlanTable(env.Out, a, env.style())
 	}
-	return report.PlanTable(env.Out, a, env.style())
+	if acc, ok := a.(*plan.Accept); ok && err == nil && rq.Fail && acc.Decision != plan.Accepted {
+		return &Failure{Code: ExitNo}
+	}
+	return err
 }
 
 // planFailure tells an input that nothing can be planned with by its flag.
@@ -118,7 +130,7 @@ func (e *Env) answer(kind string, rq PlanRequest, from *report.Sheet) (plan.Answ
 	case "same":
 		r := plan.SameRequest{Shift: rq.Shift.Float(), SD: rq.SD.Float(), Risk: or(rq.Risk, 0.2), N: n}
 		var err error
-		if r.Margin, err = marginVolts(rq.Margin, from); err != nil {
+		if r.Margin, err = e.marginVolts(rq.Margin, from); err != nil {
 			return nil, err
 		}
 		if from != nil && !rq.SD.IsKnown() {
@@ -259,7 +271,7 @@ func planLimits(s *report.Sheet, rq PlanRequest, mean float64) (low, high float6
 
 // marginVolts is a margin in volts of gate bias; one in amperes or in percent of
 // the idle current needs the transconductance of a lot.
-func marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
+func (e *Env) marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
 	if m.IsZero() && s != nil {
 		m = s.Lot.Margin
 	}
@@ -275,10 +287,12 @@ func marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
 	if !(gm > 0) || m.Unit == "%" && math.IsNaN(s.IdleCurrent) {
 		return 0, Usage("--margin 50mV", "--margin %s: lot %q has no transconductance at an idle current to turn it into volts", m, s.Lot.Name)
 	}
+	volts := m.Value / gm
 	if m.Unit == "%" {
-		return m.Value / 100 * math.Abs(s.IdleCurrent) / gm, nil
+		volts *= math.Abs(s.IdleCurrent) / 100
 	}
-	return m.Value / gm, nil
+	e.talk("margin: %s are %s at a transconductance of %s (median of %s)", report.AmountWords(m), report.FormatTwoDigits(volts, "V"), report.FormatTwoDigits(gm, "S"), report.Clean(s.Lot.Name))
+	return volts, nil
 }
 
 // tellPlanning warns of what in a lot does not fit what is planned with.
