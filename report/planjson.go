@@ -110,13 +110,13 @@ func sameMembers(s *plan.Same) []member {
 	}
 }
 
-type factorDoc struct {
+type planFactorDoc struct {
 	N    int    `json:"n"`
 	Both number `json:"k_two_limits"`
 	One  number `json:"k_one_limit"`
 }
 
-type intervalDoc struct {
+type planIntervalDoc struct {
 	Rule       string `json:"rule"`
 	Low        number `json:"low_V"`
 	High       number `json:"high_V"`
@@ -125,16 +125,16 @@ type intervalDoc struct {
 }
 
 func coverMembers(c *plan.Cover) []member {
-	factors, intervals := []factorDoc{}, []intervalDoc{}
+	factors, intervals := []planFactorDoc{}, []planIntervalDoc{}
 	for _, f := range c.Factors {
-		factors = append(factors, factorDoc{f.N, number(f.Both), number(f.One)})
+		factors = append(factors, planFactorDoc{f.N, number(f.Both), number(f.One)})
 	}
 	for _, iv := range c.Intervals {
 		rule := "normal"
 		if iv.Free {
 			rule = "any distribution"
 		}
-		intervals = append(intervals, intervalDoc{rule, number(iv.Low), number(iv.High), number(iv.K), number(iv.Confidence)})
+		intervals = append(intervals, planIntervalDoc{rule, number(iv.Low), number(iv.High), number(iv.K), number(iv.Confidence)})
 	}
 	return []member{
 		{"lot", optional(c.Lot.Name)}, {"share", number(c.Share)}, {"confidence", number(c.Confidence)}, {"n", known(c.N)},

@@ -109,23 +109,28 @@ uncertainty stays in its bin and is marked maybe, with the bin across the edge.`
 
 func reportCmd(env *job.Env) *cobra.Command {
 	var o job.SheetOptions
-	var out string
+	var out, reference string
 	cmd := &cobra.Command{
 		Use: "report LOT -o FILE", Short: "Write the lot as one self-contained page",
 		Long: `Writes one HTML file with curves, thresholds, bins, flags, conditions and
-cautions, to read, print or keep. It loads nothing from anywhere, and the same
-data gives the same bytes.`,
-		Example: "  gatesill report bag1 -o bag1.html",
+cautions, to read, print or keep; with --compare also the comparison with a
+reference lot. It loads nothing from anywhere, and the same data gives the same
+bytes.`,
+		Example: "  gatesill report bag1 -o bag1.html\n  gatesill report 2612 -o 2612.html --compare 2431",
 		Args:    exactly(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			if out == "" {
 				return job.Usage("gatesill report "+job.Quote(args[0])+" -o FILE.html", "report: no output file")
 			}
-			return job.Report(cmd.Context(), env, args[0], out, o)
+			return job.Report(cmd.Context(), env, args[0], out, reference, o)
 		},
 		ValidArgsFunction: lots(env, false),
 	}
 	cmd.Flags().StringVarP(&out, "output", "o", "", "`FILE` to write, - for stdout")
+	cmd.Flags().StringVar(&reference, "compare", "", "reference `LOT` to hold it against")
+	if err := cmd.RegisterFlagCompletionFunc("compare", manyLots(env)); err != nil {
+		panic(err) // the flag is not there
+	}
 	atFlag(cmd, &o)
 	return cmd
 }

@@ -126,13 +126,10 @@ func equivalencePower(df, shift, low, high, se, alpha float64) float64 {
 // normalWithin is the probability of a standard normal value between a and b, 0
 // when they are in the wrong order.
 func normalWithin(a, b float64) float64 {
-	switch {
-	case !(a < b):
+	if !(a < b) {
 		return 0
-	case a > 0:
-		return NormalUpper(a) - NormalUpper(b)
 	}
-	return NormalUpper(-b) - NormalUpper(-a)
+	return normalBetween(a, b)
 }
 
 // overChi is the mean of f(s) over s, the root of chi-square over its df degrees of

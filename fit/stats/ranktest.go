@@ -236,16 +236,22 @@ func SignedRank(x, y []float64) RankTest {
 	mean := N * (N + 1) / 4
 	r.normal(mean, N*(N+1)*(2*N+1)/24-tieCubes(groups)/48)
 	if n <= signedRankMost {
-		share := []float64{1}
-		for _, k := range doubled {
-			next := make([]float64, len(share)+k)
-			for s, p := range share {
-				next[s] += p / 2
-				next[s+k] += p / 2
-			}
-			share = next
-		}
-		r.exact(share, 0.5, mean)
+		r.exact(signShares(doubled), 0.5, mean)
 	}
 	return r
+}
+
+// signShares are the probabilities of 0, 1, 2 ... as the sum of those of the ranks
+// whose sign, either as likely as the other, is positive.
+func signShares(ranks []int) []float64 {
+	share := []float64{1}
+	for _, k := range ranks {
+		next := make([]float64, len(share)+k)
+		for s, p := range share {
+			next[s] += p / 2
+			next[s+k] += p / 2
+		}
+		share = next
+	}
+	return share
 }

@@ -119,6 +119,41 @@ func TestYuen(t *testing.T) {
 	}
 }
 
+// The level of tests at 0.05 without a difference, spreads unequal, where one value
+// in twenty is far off or over the range.
+func TestYuenLevel(t *testing.T) {
+	rng := rand.New(rand.NewPCG(27, 28))
+	const runs = 4000
+	for _, n := range []int{10, 20} {
+		found, lost := 0, 0
+		x, y := make([]float64, n), make([]float64, 15)
+		for range runs {
+			for k, s := range [][]float64{x, y} {
+				for i := range s {
+					s[i] = rng.NormFloat64() * float64(k+1)
+					switch rng.IntN(40) {
+					case 0:
+						s[i] *= 5
+					case 1:
+						s[i] = math.Inf(1)
+					}
+				}
+			}
+			r := YuenT(x, y, 0.2, 0.95)
+			switch {
+			case math.IsNaN(r.P):
+				lost++ // more over the range than are cut
+			case r.P < 0.05:
+				found++
+			}
+		}
+		t.Logf("n %d: %.2f %%, %d without an answer", n, 100*float64(found)/runs, lost)
+		if share := float64(found) / runs; share < 0.03 || share > 0.065 || lost > runs/500 {
+			t.Errorf("n %d: level %.4f, %d without an answer", n, share, lost)
+		}
+	}
+}
+
 // shifted, turned: what a test may depend on and what not.
 func TestMeanTestsInvariance(t *testing.T) {
 	rng := rand.New(rand.NewPCG(7, 8))
