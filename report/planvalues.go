@@ -225,6 +225,10 @@ func (p *planPrinter) accept(a *plan.Accept) {
 		}
 		p.table(bad, acc, risk)
 	}
+	if a.Needed > a.Plan.N {
+		p.line("")
+		p.say("To keep both risks (%s and %s) measure %d.", share(a.GoodRisk), share(a.Risk), a.Needed)
+	}
 	if !isNumber(a.AtGood) || !isNumber(a.AtBad) {
 		p.line("")
 		p.say("95 of 100 lots with %s bad are accepted, 10 of 100 with %s.", Chance(a.Often), Chance(a.Seldom))

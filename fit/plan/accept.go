@@ -36,7 +36,7 @@ type OCPoint struct{ Bad, Accepts float64 }
 // Accept is the answer to an [AcceptRequest].
 type Accept struct {
 	AcceptRequest
-	Needed     int                 // parts that the two points ask for, or N
+	Needed     int                 // parts that the two points ask for; without them N
 	Plan       stats.VariablesPlan // for the sample at hand where that is larger than Needed
 	AtGood     float64             // chance of accepting at Good; NaN
 	AtBad      float64             // chance of accepting at Bad; NaN
@@ -83,6 +83,10 @@ func ToAccept(r AcceptRequest) (*Accept, error) {
 		a.Plan.K = k
 	}
 	a.Needed = a.Plan.N
+	if points && r.N > 0 {
+		a.Needed = stats.VariablesPlanFor(r.Good, r.GoodRisk, r.Bad, r.Risk, known).N
+		a.Needed = max(a.Needed, 3)
+	}
 	if math.IsNaN(r.K) && r.N == 0 && r.Lot.N > a.Plan.N {
 		a.Plan = stats.VariablesPlanWith(r.Lot.N, r.Good, r.GoodRisk, known)
 	}

@@ -44,6 +44,11 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 	if rq.N.IsKnown() && rq.N.Float() == 0 {
 		return Usage("--n 20", "--n: 0 parts show nothing")
 	}
+	for _, v := range []float64{rq.Shift.Float(), rq.SD.Float(), rq.SigmaKnown.Float(), voltsOf(rq.Margin)} {
+		if v >= 5 {
+			env.warn("%s of gate voltage: a bare number is in volts, 50 mV is written 50mV", report.FormatGiven(v, "V"))
+		}
+	}
 	var from *report.Sheet
 	if rq.From != "" {
 		s, err := env.Sheet(ctx, rq.From, SheetOptions{Method: "auto", ReadOnly: true})
@@ -79,6 +84,13 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 		return &Failure{Code: ExitNo}
 	}
 	return err
+}
+
+func voltsOf(a record.Amount) float64 {
+	if a.Unit != "V" {
+		return math.NaN()
+	}
+	return a.Value
 }
 
 // planFailure tells an input that nothing can be planned with by its flag.
@@ -160,7 +172,7 @@ func (e *Env) answer(kind string, rq PlanRequest, from *report.Sheet) (plan.Answ
 			}
 			r.N = r.Lot.N
 			if r.Low, r.High = planLimits(from, rq, r.Lot.Mean); math.IsNaN(r.Low) && math.IsNaN(r.High) {
-				return nil, Usage("gatesill lot edit "+Quote(from.Lot.Name)+" --vgsth-min 2 --vgsth-max 4, or --limit-low and --limit-high", "lot %q: no limit of V_GS(th) is known for its part", from.Lot.Name)
+				return nil, Usage("gatesill lot edit "+Quote(from.Lot.Name)+" --vgsth-min 2 --vgsth-max 4, or --limit-low and --limit-high", "lot %q: no limit of its part is known for V_GS(th) at %s", from.Lot.Name, report.FormatGiven(from.TestCurrent, "A"))
 			}
 		}
 		return answered(plan.ToBeCapable(r))
@@ -252,7 +264,7 @@ func ownNumber(n int, l plan.Lot) error {
 // planLimits are the limits given, else those of the part, with the sign of the
 // values they are for.
 func planLimits(s *report.Sheet, rq PlanRequest, mean float64) (low, high float64) {
-	low, high = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	low, high = limitsOf(s, fit.KeyVgsth)
 	if rq.LimitLow.IsKnown() || rq.LimitHigh.IsKnown() {
 		low, high = rq.LimitLow.Float(), rq.LimitHigh.Float()
 	}
@@ -269,30 +281,27 @@ func planLimits(s *report.Sheet, rq PlanRequest, mean float64) (low, high float6
 	return low, high
 }
 
-// marginVolts is a margin in volts of gate bias; one in amperes or in percent of
-// the idle current needs the transconductance of a lot.
+// marginVolts is a margin in volts of gate bias, NaN for none; one of the idle
+// current is turned by the transconductance of a lot, which also may have a margin
+// stored.
 func (e *Env) marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
-	if m.IsZero() && s != nil {
+	stored := m.Unit == "" && s != nil
+	if stored {
 		m = s.Lot.Margin
 	}
 	switch {
-	case m == record.Amount{}:
+	case m.Unit == "":
 		return math.NaN(), nil
-	case m.Unit == "V":
-		return m.Value, nil
+	case s == nil && m.Unit != "V":
+		return 0, Usage("--margin 50mV, or --from LOT whose transconductance tells the volts", "--margin %s: of the idle current of which lot?", report.AmountWords(m))
 	case s == nil:
-		return 0, Usage("--margin 50mV, or --from LOT whose transconductance tells the volts", "--margin %s: of the idle current of which lot?", m)
+		return m.Value, nil
 	}
-	gm := s.Spread.Summary[fit.KeyGmIdle].Median
-	if !(gm > 0) || m.Unit == "%" && math.IsNaN(s.IdleCurrent) {
-		return 0, Usage("--margin 50mV", "--margin %s: lot %q has no transconductance at an idle current to turn it into volts", m, s.Lot.Name)
+	volts, how, err := inVolts(s, m, record.Num{}, stored)
+	if err == nil && how != "" {
+		e.talk("margin: %s", report.Clean(how))
 	}
-	volts := m.Value / gm
-	if m.Unit == "%" {
-		volts *= math.Abs(s.IdleCurrent) / 100
-	}
-	e.talk("margin: %s are %s at a transconductance of %s (median of %s)", report.AmountWords(m), report.FormatTwoDigits(volts, "V"), report.FormatTwoDigits(gm, "S"), report.Clean(s.Lot.Name))
-	return volts, nil
+	return volts, err
 }
 
 // tellPlanning warns of what in a lot does not fit what is planned with.
