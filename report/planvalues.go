@@ -42,10 +42,10 @@ func (p *planPrinter) cover(c *plan.Cover) {
 	case c.FreeBoth == 0:
 		p.answer("More than a thousand million parts would be needed for limits that hold %s whatever the distribution.", what)
 	default:
-		p.answer("Measure %d: between the least and the greatest lies %s, whatever the distribution.", c.FreeBoth, what)
+		p.answer("Measure %d: between the least and the greatest lies at least %s, whatever the distribution.", c.FreeBoth, what)
 		p.say("For one limit alone measure %d: beyond the least (or the greatest) lies no more than %s.", c.FreeOne, share(1-c.Share))
 		p.line("")
-		p.say("Where values are normal fewer do, with wider limits, mean ± k sd:")
+		p.say("Where values are normal fewer do; the limits are then mean ± k sd:")
 		p.factors(c.Factors)
 	}
 	if c.N > 0 {
@@ -60,10 +60,13 @@ func (p *planPrinter) coverLot(c *plan.Cover, what string) {
 	rule, low, high := column{head: "by"}, column{head: "low"}, column{head: "high"}
 	for _, iv := range c.Intervals {
 		name := "mean ± " + factor(iv.K) + " sd"
+		if iv.Free && !isNumber(iv.Low) {
+			continue
+		}
 		if iv.Free {
 			name = "least and greatest"
-			if isNumber(iv.Low) && c.BlocksBoth > 2 {
-				name = fmt.Sprintf("values, %d left out", c.BlocksBoth-2)
+			if c.BlocksBoth > 2 {
+				name = fmt.Sprintf("its values, %d left out", c.BlocksBoth-2)
 			}
 		}
 		rule.cells = append(rule.cells, name)
@@ -72,7 +75,7 @@ func (p *planPrinter) coverLot(c *plan.Cover, what string) {
 	}
 	p.table(rule, low, high)
 	p.line("")
-	p.say("mean ± k sd is for normal values; the other line holds whatever the distribution.")
+	p.say("mean ± k sd is for normal values.")
 }
 
 // withDigits writes a voltage with the digits that the uncertainty u allows.
@@ -222,13 +225,19 @@ func (p *planPrinter) accept(a *plan.Accept) {
 		}
 		p.table(bad, acc, risk)
 	}
-	p.line("")
-	p.say("95 of 100 lots with %s bad are accepted, 10 of 100 with %s.", Chance(a.Often), Chance(a.Seldom))
+	if a.Needed > a.Plan.N {
+		p.line("")
+		p.say("To keep both risks (%s and %s) measure %d.", share(a.GoodRisk), share(a.Risk), a.Needed)
+	}
+	if !isNumber(a.AtGood) || !isNumber(a.AtBad) {
+		p.line("")
+		p.say("95 of 100 lots with %s bad are accepted, 10 of 100 with %s.", Chance(a.Often), Chance(a.Seldom))
+	}
 	if a.Lot.Name == "" {
 		p.line("")
 		p.curve(a)
+		p.line("")
 		if a.CountN > 0 {
-			p.line("")
 			p.say("Counting bad parts instead would take %d, of which %d may be bad.", a.CountN, a.CountMost)
 		}
 		p.say("For normal values. With two limits the shares estimated beyond both are added, and may together be no more than at one limit.")

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
 	"strconv"
@@ -23,7 +24,7 @@ func (f numFlag) String() string {
 	}
 	return f.dst.String()
 }
-func (f numFlag) Type() string { return f.unit }
+func (f numFlag) Type() string { return cmp.Or(f.unit, "NUMBER") }
 func (f numFlag) Set(text string) error {
 	x, err := record.ParseNumber(text, f.unit)
 	if err == nil {
@@ -58,9 +59,9 @@ func (f shareFlag) Set(text string) error {
 	}
 	if x < 0 || x >= 1 {
 		if !percent && x >= 1 && x < 100 {
-			return fmt.Errorf("from 0 to 100 %%, and %s percent are written %s%%", head, head)
+			return fmt.Errorf("must lie between 0 and 100 %%; %s percent are written %s%%", head, head)
 		}
-		return errors.New("must lie from 0 to 100 %")
+		return errors.New("must lie between 0 and 100 %")
 	}
 	*f.dst = record.Known(x)
 	return nil
