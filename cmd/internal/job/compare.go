@@ -231,6 +231,9 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, failed("", "lot %q against %q: %w", cand.Lot.Name, ref.Lot.Name, err)
 	}
 	out.Warnings = append(warnings, out.Warnings...)
+	if out.Paired != nil {
+		out.Warnings = append(out.Warnings, changedPairs(ref, cand, by, rq)...)
+	}
 	if onlySpots(ref) && onlySpots(cand) { // nobody expects curves of them
 		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
 	}
