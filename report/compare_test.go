@@ -133,5 +133,9 @@ func TestShiftWords(t *testing.T) {
 	check(0.0001, -0.04, 0.04, "0 mV (-40 to +40 mV)")
 	check(1.234, 1.1, 1.36, "+1.234 V (+1.100 to +1.360 V)")
 	check(math.NaN(), math.NaN(), math.NaN(), "n/a")
+	require.Equal(t, "p < 1e-300", report.PWords(0))
+	require.Equal(t, "p = 1.0", report.PWords(0.9999))
+	require.Equal(t, "p = 9.9e-04", report.PWords(0.00099))
+	require.Equal(t, "p = 0.034", report.PWords(0.0342))
 	check(0.145, math.NaN(), math.NaN(), "+145 mV")
 }

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -13,7 +14,8 @@ import (
 
 // CompareTable writes a comparison of lots for people: the quantity first, then
 // verdict, shift and margin, what else differs, the tests beside the one that
-// decides, and the ways to go on. Several lots get the run of lots before that.
+// decides, and the ways to go on. Several lots get the run of lots before that, and
+// what is said of all of them once at the end.
 func CompareTable(w io.Writer, c ComparedLots, style Style) error {
 	p := &printer{w: w}
 	wrapped(p, "", "", c.ComparedLine(), style.Width)
@@ -22,11 +24,26 @@ func CompareTable(w io.Writer, c ComparedLots, style Style) error {
 		p.grid(verdictGrid(c.Candidates, style))
 		trendTable(p, c.Trend, style)
 	}
+	ofAll := c.saidOfAll()
 	for i := range c.Candidates {
 		p.line("")
-		comparedLot(p, &c.Candidates[i], style)
+		comparedLot(p, &c.Candidates[i], ofAll, style)
+	}
+	if len(ofAll) > 0 {
+		p.line("")
+		lotWarnings(p, *c.Reference, ofAll, style)
 	}
 	return p.err
+}
+
+// saidOfAll are the warnings that every comparison has.
+func (c *ComparedLots) saidOfAll() []fit.Warning {
+	if len(c.Candidates) == 0 {
+		return nil
+	}
+	return slices.DeleteFunc(slices.Clone(c.Candidates[0].Compared.Warnings), func(w fit.Warning) bool {
+		return slices.ContainsFunc(c.Candidates, func(s Sheet) bool { return !slices.Contains(s.Compared.Warnings, w) })
+	})
 }
 
 // quantity is what was compared.
@@ -52,14 +69,14 @@ func fact(p *printer, label, words string, style Style) {
 	wrapped(p, head, strings.Repeat(" ", labelWidth), words, style.Width)
 }
 
-// comparedLot writes one comparison.
-func comparedLot(p *printer, s *Sheet, style Style) {
+// comparedLot writes one comparison, warnings that hold for all of them left out.
+func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	c := s.Compared
 	sgr := bold
 	if c.No() {
 		sgr = red
 	}
-	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.reasonWords())), style.Width)
+	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.Reason())), style.Width)
 	p.line("")
 	p.grid(countsGrid(s, style))
 	p.line("")
@@ -68,7 +85,7 @@ func comparedLot(p *printer, s *Sheet, style Style) {
 	if m := c.MarginWords(); m != "" {
 		fact(p, "margin", m, style)
 	}
-	if isNumber(c.NotExcluded) && (c.Verdict == compare.NoDifference || c.Verdict == compare.TooFew) {
+	if isNumber(c.NotExcluded) && c.Verdict == compare.TooFew {
 		fact(p, "not excluded", "shifts up to "+FormatTwoDigits(c.NotExcluded, "V"), style)
 	}
 	if c.More > 0 || c.MoreText != "" {
@@ -83,7 +100,7 @@ func comparedLot(p *printer, s *Sheet, style Style) {
 		fact(p, "spread", "ratio of the standard deviations "+RatioWords(c.Spread)+orNothing(", by ", Clean(c.SpreadTest)), style)
 	}
 	if c.Paired != nil {
-		fact(p, "pairs", pairedFact(c.Paired), style)
+		fact(p, "pairs", pairedFact(c), style)
 	}
 	if c.Gain != nil {
 		fact(p, "gain", gainFact(c.Gain), style)
@@ -100,16 +117,33 @@ func comparedLot(p *printer, s *Sheet, style Style) {
 		p.line("%s", style.paint("Secondary tests (they decide nothing; p adjusted for their number)", bold))
 		p.grid(secondaryGrid(c.Secondary, style))
 	}
-	if len(c.Options) > 0 {
+	waysOn(p, s, style)
+	own := slices.DeleteFunc(slices.Clone(c.Warnings), func(w fit.Warning) bool { return slices.Contains(ofAll, w) })
+	if len(own) > 0 {
 		p.line("")
-		p.line("%s", style.paint("Ways to go on", bold))
-		for _, o := range c.Options {
-			wrapped(p, "  "+Clean(o.Name)+": ", "    ", Clean(Sentence(o.Text)), style.Width)
-		}
+		lotWarnings(p, *s, own, style)
 	}
-	if len(c.Warnings) > 0 {
-		p.line("")
-		lotWarnings(p, *s, c.Warnings, style)
+}
+
+// waysOn writes the ways to go on; those that need the idle current only say so
+// where there is none.
+func waysOn(p *printer, s *Sheet, style Style) {
+	c := s.Compared
+	if len(c.Options) == 0 {
+		return
+	}
+	p.line("")
+	p.line("%s", style.paint("Ways to go on", bold))
+	var need []string
+	for _, o := range c.Options {
+		if !isNumber(c.Reference.IdleCurrent) && o.Name != compare.SortFirst && o.Name != compare.SendBack {
+			need = append(need, Clean(o.Name))
+			continue
+		}
+		wrapped(p, "  "+Clean(o.Name)+": ", "    ", Clean(Sentence(o.Text)), style.Width)
+	}
+	if need != nil {
+		wrapped(p, "  "+strings.Join(need, ", ")+": ", "    ", "Told when the idle current is given (gatesill lot edit LOT --idle-current).", style.Width)
 	}
 }
 
@@ -120,26 +154,19 @@ func orNothing(lead, words string) string {
 	return lead + words
 }
 
-// shiftFact is the shift with its interval, its test and, with a margin, the
-// interval that is held against that.
+// shiftFact is the shift with its interval and its test.
 func shiftFact(c *Compared) string {
 	if !isNumber(c.Shift) {
 		return ""
 	}
-	v, l, h, unit := ShiftTexts(c.Shift, c.Low, c.High, "V")
-	text := withUnit(v, unit)
-	if l != NotAvailable && h != NotAvailable {
-		text += fmt.Sprintf(", %s interval %s to %s", LevelWords(c.Level), l, withUnit(h, unit))
+	text := ShiftWords(c.Shift, c.Low, c.High, "V")
+	if isNumber(c.Low) && isNumber(c.High) {
+		text += " at " + LevelWords(c.Level)
 	}
-	if isNumber(c.MarginLow) && isNumber(c.MarginHigh) {
-		_, l, h, unit := ShiftTexts(c.Shift, c.MarginLow, c.MarginHigh, "V")
-		text += fmt.Sprintf("; %s interval, for the margin, %s to %s", LevelWords(marginLevel), l, withUnit(h, unit))
-	}
-	text += orNothing(", by ", Clean(c.Test))
 	if isNumber(c.P) {
-		text += ", p = " + ProbabilityWords(c.P)
+		text += ", " + PWords(c.P)
 	}
-	return text
+	return text + orNothing(", by ", Clean(c.Test))
 }
 
 // rawFact is the shift as it was read, where something was taken off it.
@@ -149,7 +176,7 @@ func rawFact(c *Compared) string {
 	}
 	text := ShiftWords(c.Raw, c.Raw+c.Low-c.Shift, c.Raw+c.High-c.Shift, "V")
 	if c.ForTemp != 0 {
-		text += "; taken off for the temperature: " + signedVolts(roundTo(c.ForTemp, 3), math.NaN())
+		text += "; taken off for the temperature: " + offsetWords(roundTo(c.ForTemp, 3), math.NaN())
 	}
 	return text
 }
@@ -167,14 +194,14 @@ func commonFact(c *Compared) string {
 	if e.Controls > 0 {
 		text += fmt.Sprintf("; %s tie the lots together", count(e.Controls, "control part"))
 		if e.Offset != 0 {
-			text += ", " + signedVolts(e.Offset, e.OffsetU) + " taken off"
+			text += ", " + offsetWords(e.Offset, e.OffsetU) + " taken off"
 		}
 	}
 	return text
 }
 
-// signedVolts writes a voltage with its sign and uncertainty.
-func signedVolts(x, u float64) string {
+// offsetWords writes a voltage with its sign and uncertainty.
+func offsetWords(x, u float64) string {
 	text := FormatPlain(x, u, "V")
 	if x > 0 {
 		text = "+" + text
@@ -182,13 +209,14 @@ func signedVolts(x, u float64) string {
 	return text
 }
 
-func pairedFact(q *compare.Paired) string {
+func pairedFact(c *Compared) string {
+	q := c.Paired
 	text := fmt.Sprintf("%s by serial", count(q.Pairs, "pair"))
 	text += orNothing(": ", Clean(q.Why))
 	if isNumber(q.SD) {
 		text += "; differences have a standard deviation of " + FormatTwoDigits(q.SD, "V")
 	}
-	if isNumber(q.Own.Value) {
+	if isNumber(q.Own.Value) && c.Common.U > 0 {
 		text += "; by themselves, nothing taken off: " + ShiftWords(q.Own.Value, q.Own.Low, q.Own.High, "V")
 	}
 	for _, o := range []struct {
@@ -206,7 +234,7 @@ func gainFact(g *compare.Gain) string {
 	if g.Text != "" {
 		return Clean(Sentence(g.Text))
 	}
-	return fmt.Sprintf("%s %s, p = %s (n = %d and %d)", KeyOf(g.Key).Name, ShiftWords(g.Percent.Value, g.Percent.Low, g.Percent.High, "%"), ProbabilityWords(g.P), g.N[0], g.N[1])
+	return fmt.Sprintf("%s %s, %s (n = %d and %d)", KeyOf(g.Key).Name, ShiftWords(g.Percent.Value, g.Percent.Low, g.Percent.High, "%"), PWords(g.P), g.N[0], g.N[1])
 }
 
 // countsGrid shows centre, spread and counts of both lots.
@@ -221,6 +249,7 @@ func countsGrid(s *Sheet, style Style) grid {
 	sc := ScaleOf("V", c.SD[:]...)
 	sds := make([]string, 2)
 	for i, sd := range c.SD {
+		centre[i], _, _ = strings.Cut(centre[i], " ±")     // the shift has an interval; this only says where
 		sds[i] = sc.FormatNumber(sd, ses[i]/math.Sqrt2, 0) // that of a standard deviation: sd/√(2n)
 	}
 	g := grid{style: style, cols: []column{

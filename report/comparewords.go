@@ -54,9 +54,12 @@ func RatioWords(r compare.Interval) string {
 	return text(r.Value) + " (" + text(r.Low) + " to " + text(r.High) + ")"
 }
 
-// ProbabilityWords writes a probability with two digits: "0.034", "1.5e-11".
+// ProbabilityWords writes a probability with two digits: "0.034", "1.5e-11"; one too
+// small for a computer's number as what it is below.
 func ProbabilityWords(p float64) string {
 	switch {
+	case p == 0:
+		return "< 1e-300"
 	case !isNumber(p):
 		return NotAvailable
 	case p >= 0.995:
@@ -65,6 +68,15 @@ func ProbabilityWords(p float64) string {
 		return strconv.FormatFloat(p, 'g', 2, 64)
 	}
 	return strconv.FormatFloat(p, 'e', 1, 64)
+}
+
+// PWords writes "p = 0.034", "p < 1e-300".
+func PWords(p float64) string {
+	text := ProbabilityWords(p)
+	if strings.HasPrefix(text, "<") {
+		return "p " + text
+	}
+	return "p = " + text
 }
 
 // LevelWords writes a level: "95 %", "99.9 %".
@@ -85,8 +97,8 @@ func (c *ComparedLots) ComparedLine() string {
 	return text + "; a shift is that of the lot minus that of reference lot " + Clean(c.Reference.Lot.Name) + "."
 }
 
-// reasonWords is the sentence of the verdict without the verdict at its head.
-func (c *Compared) reasonWords() string {
+// Reason is the sentence of the verdict without the verdict at its head.
+func (c *Compared) Reason() string {
 	rest, cut := strings.CutPrefix(c.Sentence, string(c.Verdict))
 	if !cut {
 		return c.Sentence

@@ -249,7 +249,7 @@ func (s *Sheet) partsFields() []Field {
 	}
 	out = append(out, Field{"tolerance interval", Clean(band)})
 	if o := &sp.Outside; isNumber(o.Upper) {
-		out = append(out, Field{"outside", fmt.Sprintf("%d of %d; up to %s of the parts (%s confidence)", o.Count, o.N, percent(o.Upper), percent(o.Level))})
+		out = append(out, Field{"outside", fmt.Sprintf("%d of %d; up to %s of %s (%s confidence)", o.Count, o.N, percent(o.Upper), sp.Band.Of, percent(o.Level))})
 	}
 	if sp.SendBack {
 		out = append(out, Field{"send back", s.sendBackLine()})

@@ -44,14 +44,6 @@ func trendTable(p *printer, t *compare.Trend, style Style) {
 	}
 	p.line("%s", style.paint("The run of lots, "+order, bold))
 	p.grid(trendGrid(t, style))
-	if isNumber(t.Low) && isNumber(t.High) {
-		sc, u := ScaleOf("V", t.Low, t.High), (t.High-t.Low)/6
-		text := fmt.Sprintf("Control limits of the centres, by their moving range: %s to %s", sc.FormatNumber(t.Low, u, 0), withUnit(sc.FormatNumber(t.High, u, 0), sc.Unit("V")))
-		if t.Provisional {
-			text += fmt.Sprintf("; provisional, from %d lots (20 are usual)", len(t.Lots))
-		}
-		wrapped(p, "", "  ", text+".", style.Width)
-	}
 	for _, words := range t.Text {
 		wrapped(p, "", "  ", Clean(Sentence(words)), style.Width)
 	}

@@ -14,11 +14,11 @@ import (
 // warnings of each. known is the repeatability of the bench where that comes from
 // elsewhere; the study's own goes before it, where it is enough.
 func FindingOf(ms []Measuring, known Repeatability, tempco float64) Finding {
-	f := Finding{Study: StudyOf(ms)}
+	f := Finding{Study: StudyOf(ms, tempco)}
 	if f.Study.Repeatability.Enough() {
 		known = f.Study.Repeatability
 	}
-	f.Drifts = DriftsOf(ms, known)
+	f.Drifts = DriftsOf(f.Study.kept, known)
 	f.Charts = ChartsOf(ms, tempco)
 	for _, h := range HistoryOf(ms, HistoryOptions{Tempco: tempco, Known: known}) {
 		if slices.ContainsFunc(h.Changes, func(c Change) bool { return !c.Control }) { // the chart tells of others

@@ -26,7 +26,7 @@ func volts(v float64) string {
 		return "0 mV"
 	case a >= 0.9995:
 		scale, unit = 1, "V"
-	case a < 0.0995e-3:
+	case a < 0.00995e-3:
 		scale, unit = 1e6, "µV"
 	}
 	x := v * scale

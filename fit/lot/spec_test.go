@@ -164,7 +164,7 @@ func lotsOfFour(t *testing.T) map[string][]Device {
 }
 
 // Two invented lots of thirty against 2 to 4 V. Ppk, its lower limit (scipy 1.10.1, see
-// TestCapabilityLower of fit/stats) and the tolerance interval were worked out by a
+// TestCpkBoundCovers of fit/stats) and the tolerance interval were worked out by a
 // second program from mean and standard deviation.
 func TestCapabilityOfLots(t *testing.T) {
 	lots := lotsOfFour(t)

@@ -23,7 +23,7 @@ type AcceptRequest struct {
 // Decision is what a plan says about the sample at hand.
 type Decision string
 
-// Decisions. Undecided: there are too few values, or no limit.
+// Decisions. Undecided: too few values, no limit, or not normal.
 const (
 	Undecided   Decision = ""
 	Accepted    Decision = "accept"
@@ -36,7 +36,7 @@ type OCPoint struct{ Bad, Accepts float64 }
 // Accept is the answer to an [AcceptRequest].
 type Accept struct {
 	AcceptRequest
-	Needed     int                 // parts that the two points ask for, or N
+	Needed     int                 // parts that the two points ask for; without them N
 	Plan       stats.VariablesPlan // for the sample at hand where that is larger than Needed
 	AtGood     float64             // chance of accepting at Good; NaN
 	AtBad      float64             // chance of accepting at Bad; NaN
@@ -54,8 +54,8 @@ type Accept struct {
 
 // ToAccept answers an [AcceptRequest]. A sample of fewer parts than the plan wants
 // is not judged, unless N says to plan with so few; one of more is judged with the
-// factor of its own size, which keeps both risks. Errors: [Invalid]. Checked:
-// TestAccept.
+// factor of its own size, which keeps both risks. Values that are not normal are
+// not judged. Errors: [Invalid]. Checked: TestAccept.
 func ToAccept(r AcceptRequest) (*Accept, error) {
 	known := !math.IsNaN(r.KnownSigma)
 	a := &Accept{AcceptRequest: r, AtGood: math.NaN(), AtBad: math.NaN(), Normality: Normality{P: math.NaN()}}
@@ -78,7 +78,15 @@ func ToAccept(r AcceptRequest) (*Accept, error) {
 			a.Plan = stats.VariablesPlanWith(3, r.Good, r.GoodRisk, known)
 		}
 	}
+	// A factor as it is written down, where the risks leave room for that.
+	if k := math.Floor(a.Plan.KMost*1000) / 1000; k >= a.Plan.KLeast {
+		a.Plan.K = k
+	}
 	a.Needed = a.Plan.N
+	if points && r.N > 0 {
+		a.Needed = stats.VariablesPlanFor(r.Good, r.GoodRisk, r.Bad, r.Risk, known).N
+		a.Needed = max(a.Needed, 3)
+	}
 	if math.IsNaN(r.K) && r.N == 0 && r.Lot.N > a.Plan.N {
 		a.Plan = stats.VariablesPlanWith(r.Lot.N, r.Good, r.GoodRisk, known)
 	}
@@ -171,6 +179,8 @@ func (a *Accept) judge(known bool) {
 	case a.Undecided != "":
 	case !a.Judgement.Computable:
 		a.Undecided = "its values have no spread to judge by, or are too few"
+	case a.Normality.Doubts:
+		a.Undecided = "the rule is for normal values, and these are not"
 	case a.Judgement.Accept:
 		a.Decision = Accepted
 	default:
@@ -189,7 +199,7 @@ func curve(p stats.VariablesPlan, bad float64) []OCPoint {
 	const steps = 200
 	points := make([]OCPoint, steps+1)
 	for i := range points {
-		x := end * float64(i) / steps
+		x := math.Round(end*float64(i)/steps*1e12) / 1e12
 		points[i] = OCPoint{x, p.Accepts(x)}
 	}
 	return points

@@ -15,6 +15,9 @@ package plan
 import (
 	"fmt"
 	"math"
+	"strings"
+
+	"gatesill/fit/stats"
 )
 
 // Answer is what one of the kinds found: a pointer to [Find], [Shift], [Same],
@@ -61,12 +64,18 @@ type Lot struct {
 	Values []float64
 }
 
+// LotOf is a sample of values, V, with their mean and standard deviation.
+func LotOf(name string, values []float64) Lot {
+	mean, sd := stats.MeanSD(values)
+	return Lot{Name: name, N: len(values), Mean: mean, SD: sd, Values: values}
+}
+
 func (l *Lot) given() bool { return l.N > 0 || l.Name != "" }
 
 // fraction checks a share, risk or confidence.
 func fraction(input string, x float64, hint string) error {
 	if !(x > 0 && x < 1) {
-		return &Invalid{input, fmt.Sprintf("%v must lie between 0 and 100 %%, both left out", percent(x)), hint}
+		return &Invalid{input, percent(x) + ", must lie above 0 and below 100 %", hint}
 	}
 	return nil
 }
@@ -84,7 +93,7 @@ func above(input string, x float64, unit, hint string) error {
 	case math.IsNaN(x):
 		return &Invalid{input, "needed", hint}
 	case !(x > 0) || math.IsInf(x, 0):
-		return &Invalid{input, fmt.Sprintf("%.6g %s must be above 0", x, unit), hint}
+		return &Invalid{input, strings.TrimSpace(fmt.Sprintf("%.6g %s", x, unit)) + ", must be above 0", hint}
 	}
 	return nil
 }

@@ -200,7 +200,7 @@ func sdHigh(l Lot) float64 {
 }
 
 // reach is the least x at which chance, which rises with it, is reached, to a part
-// in 10 000.
+// in 1000.
 func reach(chance float64, of func(x float64) float64) float64 {
 	lo, hi := 0.0, 1.0
 	for !(of(hi) >= chance) {
@@ -209,7 +209,7 @@ func reach(chance float64, of func(x float64) float64) float64 {
 			return math.NaN()
 		}
 	}
-	for hi-lo > 1e-4*hi {
+	for hi-lo > 1e-3*hi {
 		if mid := (lo + hi) / 2; of(mid) >= chance {
 			hi = mid
 		} else {

@@ -109,27 +109,14 @@ func (p *pair) interval(low, high float64) string {
 }
 
 // plusMinus writes the margin: "± 50 mV".
-func (p *pair) plusMinus() string { return "± " + report.FormatGiven(p.c.Margin, p.unit) }
+func (p *pair) plusMinus() string { return "± " + report.FormatPlain(p.c.Margin, math.NaN(), p.unit) }
 
-// percent writes a share: 0.95 is "95 %".
+// percent writes a level: 0.95 is "95 %".
 func percent(x float64) string {
 	if !isNumber(x) {
 		return report.NotAvailable
 	}
-	return strconv.FormatFloat(100*x, 'g', 4, 64) + " %"
-}
-
-// probability writes a p value as people read it.
-func probability(p float64) string {
-	switch {
-	case !isNumber(p):
-		return report.NotAvailable
-	case p >= 0.995:
-		return "1.0"
-	case p >= 1e-3:
-		return strconv.FormatFloat(p, 'g', 2, 64)
-	}
-	return strconv.FormatFloat(p, 'e', 1, 64)
+	return report.LevelWords(x)
 }
 
 // numbersOf is "n = 38 and 36", the reference first.
@@ -146,7 +133,7 @@ func (v *view) compared(k *known) {
 	if !ok {
 		w.word, w.shape, w.class = report.Sentence(report.Clean(string(p.c.Verdict))), "?", "few"
 	}
-	d := &compared{Reference: report.Clean(p.c.Reference), Class: w.class, Shape: w.shape, Verdict: w.word, Sentence: rich(report.Sentence(p.c.Sentence))}
+	d := &compared{Reference: report.Clean(p.c.Reference), Class: w.class, Shape: w.shape, Verdict: w.word, Sentence: rich(report.Sentence(k.Compared.Reason()))}
 	lead := "Compared with lot " + p.c.Reference + ": " + string(p.c.Verdict)
 	if isNumber(p.c.Shift) {
 		lead += fmt.Sprintf(", shift %s (%s interval %s)", p.shift(p.c.Shift), percent(p.c.Level), p.interval(p.c.Low, p.c.High))
@@ -245,10 +232,10 @@ func (p *pair) says(d *compared) {
 		if c.Test != "" {
 			text += ". By " + c.Test
 			if isNumber(c.DF) {
-				text += fmt.Sprintf(", %.3g degrees of freedom", c.DF)
+				text += ", " + degrees(c.DF) + " degrees of freedom"
 			}
 			if isNumber(c.P) {
-				text += ", p " + equals(probability(c.P))
+				text += ", p " + equals(report.ProbabilityWords(c.P))
 			}
 		}
 		say("shift", "%s.", text)
@@ -274,33 +261,29 @@ func (p *pair) says(d *compared) {
 	if b := c.Curves; b != nil {
 		say("whole curves", "%s", report.Sentence(b.Text))
 	}
-	if g := c.Gain; g != nil {
-		text := ""
-		if isNumber(g.Percent.Value) {
-			text = fmt.Sprintf("%s of this lot against the reference: %+.2g %%", report.KeyOf(g.Key).Name, g.Percent.Value)
-			if isNumber(g.Percent.Low) && isNumber(g.Percent.High) {
-				text += fmt.Sprintf(", %s interval %+.2g %% to %+.2g %%", percent(c.Level), g.Percent.Low, g.Percent.High)
-			}
-			text += fmt.Sprintf(" (n = %d and %d; p %s)", g.N[0], g.N[1], equals(probability(g.P)))
-			if g.Adjusted {
-				text += ", at equal threshold by the common slope of gain on threshold"
-			} else {
-				text += ", not adjusted for the threshold"
-			}
-			text = report.Sentence(text) + " "
-		}
-		say("gain at equal threshold", "%s%s", text, report.Sentence(g.Text))
-	}
+	p.gain(say)
 	p.populations(say)
 	if q := c.Paired; q != nil {
 		text := fmt.Sprintf("By serial, %s. %s", plural(q.Pairs, "pair"), report.Sentence(q.Why))
 		if isNumber(q.SD) {
+			if isNumber(q.Own.Value) {
+				own, low, high, unit := report.ShiftTexts(q.Own.Value, q.Own.Low, q.Own.High, p.unit)
+				text += fmt.Sprintf(" The pairs alone, with nothing taken off and without the error common to a lot: %s %s, %s interval %s to %s %s.", own, unit, percent(c.Level), low, high, unit)
+			}
 			text += fmt.Sprintf(" The differences scatter by %s (1 sd, n = %d).", report.FormatTwoDigits(q.SD, p.unit), q.Pairs)
 		}
 		say("pairing", "%s", text)
 	} else {
 		say("pairing", "None: the devices of the two lots are taken as different ones.")
 	}
+}
+
+// degrees writes degrees of freedom with three digits, large ones whole.
+func degrees(df float64) string {
+	if df >= 100 && df < 1e15 {
+		return strconv.FormatFloat(df, 'f', 0, 64)
+	}
+	return strconv.FormatFloat(df, 'g', 3, 64)
 }
 
 // equals puts a sign of equality before a number that has no sign of its own.
@@ -311,17 +294,14 @@ func equals(number string) string {
 	return "= " + number
 }
 
-// takenOff says what parts the shift as read from the shift told: what the
-// control parts explain, and for the rest the temperatures of the lots.
+// takenOff says what parts the shift as read from the shift told.
 func (p *pair) takenOff() string {
-	rest := p.c.Raw - p.c.Shift
 	var parts []string
 	if o := p.c.Common.Offset; o != 0 && isNumber(o) {
 		parts = append(parts, p.shift(o)+" was taken off for the control parts")
-		rest -= o
 	}
-	if math.Abs(rest) > 1e-6*largest(p.c.Raw, p.c.Shift) {
-		parts = append(parts, p.shift(rest)+" was taken off for the temperatures of the lots")
+	if t := p.c.ForTemp; t != 0 && isNumber(t) {
+		parts = append(parts, p.shift(t)+" was taken off for the temperatures of the lots")
 	}
 	if len(parts) == 0 {
 		return "what control parts and temperature explain was taken off"
@@ -399,6 +379,23 @@ func ties(n int) string {
 		return "1 control part ties"
 	}
 	return strconv.Itoa(n) + " control parts tie"
+}
+
+// gain tells of the drive strength, in the comparison's own sentence.
+func (p *pair) gain(say func(head, format string, args ...any)) {
+	g := p.c.Gain
+	if g == nil {
+		return
+	}
+	head, how := "gain", "not adjusted for the threshold"
+	if g.Adjusted {
+		head, how = "gain at equal threshold", "adjusted by the common slope of gain on threshold"
+	}
+	text := report.Sentence(g.Text)
+	if text == "" {
+		text = report.Sentence(fmt.Sprintf("%s %s", report.KeyOf(g.Key).Name, report.ShiftWords(g.Percent.Value, g.Percent.Low, g.Percent.High, "%")))
+	}
+	say(head, "%s By the %s, n = %d and %d, %s, p %s.", text, report.KeyOf(g.Key).Name, g.N[0], g.N[1], how, equals(report.ProbabilityWords(g.P)))
 }
 
 func (p *pair) populations(say func(head, format string, args ...any)) {

@@ -69,21 +69,22 @@ func TestVerdictInWordAndShape(t *testing.T) {
 func TestComparisonIsTold(t *testing.T) {
 	s := compared(two[0], two[1], invented.Against{Margin: 0.05, Paired: true})
 	c := &s.Compared.Comparison
-	c.Shift, c.Low, c.High, c.MarginLow, c.MarginHigh, c.NotExcluded, c.Raw = 0.0123, 0.0041, 0.0205, 0.0055, 0.0191, 0.0205, 0.0143
+	c.Shift, c.Low, c.High, c.MarginLow, c.MarginHigh, c.NotExcluded, c.Raw, c.ForTemp = 0.0123, 0.0041, 0.0205, 0.0055, 0.0191, 0.0205, 0.0143, 0.004
 	s.Compared.MarginFrom = "20 % of the idle current, stored with lot 2611 on 2026-05-02"
+	c.Paired.Own = compare.Interval{Value: 0.0143, Low: 0.0103, High: 0.0183}
 	c.DF, c.P, c.Centre = 52.3, 0.0031, [2]float64{3.384, 3.3963}
 	c.Counts = [2]compare.Counts{{N: 38, WithValue: 35, Above: 2, Without: 1, Flagged: 4, Aside: 3, Control: 6}, {N: 31, WithValue: 30, Above: 1, Flagged: 5, Aside: 7, Control: 8}}
 	c.More, c.MoreText = 120, "it takes the spread of these lots for that of the next"
 	text := words(section(t, write(t, s)))
 	for _, want := range []string{
-		report.Sentence(c.Sentence), "+12.3 mV, 95 % interval +4.1 to +20.5 mV (n = 35 of the reference, 30 of this lot). By invented test on means, 52.3 degrees of freedom, p = 0.0031.",
+		report.Sentence(s.Compared.Reason()), "+12.3 mV, 95 % interval +4.1 to +20.5 mV (n = 35 of the reference, 30 of this lot). By invented test on means, 52.3 degrees of freedom, p = 0.0031.",
 		"+14.3 mV, before -2.0 mV was taken off for the control parts and +4.0 mV was taken off for the temperatures of the lots.",
 		"± 50 mV, before the first reading of this lot: the largest shift that does not matter. 20 % of the idle current, stored with lot 2611 on 2026-05-02.",
 		"Here it is +5.5 to +19.1 mV.", "called inside it in about 5 of 100 comparisons",
 		"The largest shift that these devices do not exclude is 20.5 mV (95 % interval; n = 35 of the reference, 30 of this lot). About 120 devices of each lot would tell. It takes the spread of these lots for that of the next.",
 		"gatesill plan shift", "400 µV (standard uncertainty of the shift, in the interval). Basis: control parts. 2 control parts tie both lots together; -2.00 ± 0.40 mV was taken off the shift for them.",
-		"of the reference (95 % interval", "invented test on spreads", "Gain factor of this lot against the reference: +1.2 %, 95 % interval -0.4 % to +2.8 % (n = 34 and 30; p = 0.14), at equal threshold",
-		"By serial, 30 pairs. 34 serials stand in both lots and their values go together. The differences scatter by 1.1 mV (1 sd, n = 30).",
+		"of the reference (95 % interval", "invented test on spreads", "gain at equal threshold At equal threshold no difference of the gain factor is seen: +1.2 %, 95 % interval -0.4 to +2.8 %. By the gain factor, n = 34 and 30, adjusted by the common slope of gain on threshold, p = 0.14.",
+		"By serial, 30 pairs. 34 serials stand in both lots and their values go together. The pairs alone, with nothing taken off and without the error common to a lot: +14.3 mV, 95 % interval +10.3 to +18.3 mV. The differences scatter by 1.1 mV (1 sd, n = 30).",
 		"with a value (n) 35 30", "above: never reach the current 2 1", "with neither 1 0", "flagged: counted, never left out for that 4 5", "excluded 3 7", "control parts, in no statistic 6 8",
 		"centre (trimmed mean) 3.384 V (n = 35) 3.396 V (n = 30)", "parts in the lot 160 144", "how the sample was taken every fourth part of the tubes, in tube order every fourth",
 		"invented test on ranks 412", "invented test on whole distributions 0.31 n/a n/a", "They decide nothing", "take it as it is With the old network", "send back No rule of yours is broken. outside-margin: not met.", "re-adjust The trimmers move by 15 mV at the centre. none stored",
@@ -163,6 +164,7 @@ func TestComparisonOfLittle(t *testing.T) {
 		text := words(write(t, odd))
 		require.NotContains(t, text, "NaN")
 		require.NotContains(t, text, "Inf")
+		odd.Compared.Gain.Text = ""
 	}
 }
 

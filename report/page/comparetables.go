@@ -31,7 +31,7 @@ func (p *pair) tables(d *compared) {
 			if isNumber(s.Statistic) {
 				stat = strconv.FormatFloat(s.Statistic, 'g', 4, 64)
 			}
-			t.Rows = append(t.Rows, []cell{{Text: rich(s.Test), Head: true}, number(stat), number(probability(s.P)), number(probability(s.PAdjusted))})
+			t.Rows = append(t.Rows, []cell{{Text: rich(s.Test), Head: true}, number(stat), number(report.ProbabilityWords(s.P)), number(report.ProbabilityWords(s.PAdjusted))})
 		}
 		d.Secondary = t
 	}
@@ -269,7 +269,7 @@ func (v *view) trend(k *known) {
 				break
 			}
 			u := (p.High - p.Low) / 4
-			pt.Rows = append(pt.Rows, []cell{nameCell(p.A + ", " + p.B), number(sc.FormatNumber(p.Shift, u, 0)), number(sc.FormatNumber(p.Low, u, 0) + " to " + sc.FormatNumber(p.High, u, 0)), number(probability(p.P)), number(probability(p.PAdjusted))})
+			pt.Rows = append(pt.Rows, []cell{nameCell(p.A + ", " + p.B), number(sc.FormatNumber(p.Shift, u, 0)), number(sc.FormatNumber(p.Low, u, 0) + " to " + sc.FormatNumber(p.High, u, 0)), number(report.ProbabilityWords(p.P)), number(report.ProbabilityWords(p.PAdjusted))})
 		}
 		d.Pairs = pt
 	}

@@ -121,6 +121,9 @@ func (v *view) devices(k *known) {
 	if absolute {
 		t.Note += " ± abs. is one standard uncertainty against the SI unit, gain of the meters and tolerance of the load resistor included, the one that counts against a limit of the data sheet."
 	}
+	if k.judgements() != nil {
+		t.Note += " Beside a verdict stands the probability that the device lies within the limits of the data sheet, where its absolute uncertainty is known."
+	}
 	if k.any(fit.KeyIdss) {
 		t.Note += " " + rich(report.LeakageNote)
 	}

@@ -10,7 +10,7 @@ import (
 
 // specView is the lot against the limits of its data sheet.
 type specView struct {
-	Fields   []field
+	Lines    []group
 	Verdicts *table
 	Notes    []template.HTML
 }
@@ -30,7 +30,7 @@ func (v *view) specification(k *known) {
 	}
 	out := &specView{}
 	for _, f := range k.SpecFields() {
-		out.Fields = append(out.Fields, field{rich(f.Label), rich(f.Value), true, false})
+		out.Lines = append(out.Lines, group{rich(f.Label), rich(report.Sentence(f.Value))})
 	}
 	if sp.Why == "" {
 		t := &table{Caption: "Verdicts", Heads: []head{{"verdict", false}, {"devices", true}, {"means", false}}}

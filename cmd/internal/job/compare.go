@@ -6,10 +6,12 @@ import (
 	"math"
 	"slices"
 	"strings"
+	"time"
 
 	"gatesill/fit"
 	"gatesill/fit/compare"
 	"gatesill/report"
+	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -87,6 +89,9 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
 		env.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
 	}
+	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
+		env.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
+	}
 	sheets := make([]report.Sheet, len(candidates))
 	for i, name := range candidates {
 		if sheets[i], err = env.candidateSheet(ctx, &ref, name, o); err != nil {
@@ -97,6 +102,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if err != nil {
 		return err
 	}
+	start := time.Now()
 	for i := range sheets {
 		c, err := compareSheets(&ref, &sheets[i], by, rq)
 		if err != nil {
@@ -106,12 +112,20 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	}
 	cl := report.ComparedLots{Reference: &ref, Candidates: sheets}
 	if len(sheets) > 1 {
-		trend, err := compare.TrendOf(inTime(&ref, sheets), optionsOf(&ref, by, rq))
+		lots := []compare.Lot{comparedLot(&ref)}
+		for i := range sheets {
+			lots = append(lots, comparedLot(&sheets[i]))
+		}
+		trend, err := compare.TrendOf(lots, optionsOf(&ref, by, rq))
 		if err != nil {
 			return failed("", "the run of lots: %w", err)
 		}
+		if rq.Tempco.IsKnown() {
+			trend.Text = append(trend.Text, "the run of lots and its pairs are as read: the temperature is taken off the shifts against the reference lot only")
+		}
 		cl.Trend = &trend
 	}
+	env.detail("%s compared in %v", count(1+len(sheets), "lot"), time.Since(start).Round(time.Millisecond))
 	if env.JSON {
 		err = report.CompareJSON(env.Out, cl)
 	} else {
@@ -209,6 +223,7 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	opt.Margin, opt.MarginSet = m.volts, m.set
+	opt.Repeatability = repeatabilityOf(ref, cand, by)
 	opt.SendBack = first(cand.Lot.SendBack, ref.Lot.SendBack)
 	out.MarginFrom = m.text
 	out.Comparison, err = compare.Lots(comparedLot(ref), comparedLot(cand), opt)
@@ -216,7 +231,29 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, failed("", "lot %q against %q: %w", cand.Lot.Name, ref.Lot.Name, err)
 	}
 	out.Warnings = append(warnings, out.Warnings...)
+	if onlySpots(ref) && onlySpots(cand) { // nobody expects curves of them
+		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
+	}
 	return out, nil
+}
+
+// repeatabilityOf is the greater of what is known of the lots' benches, V; NaN where
+// nothing is.
+func repeatabilityOf(ref, cand *report.Sheet, by fit.Key) float64 {
+	worst := math.NaN()
+	for _, s := range []*report.Sheet{ref, cand} {
+		if r, ok := s.Repeatability[by]; ok && !(r.Value <= worst) {
+			worst = r.Value
+		}
+	}
+	return worst
+}
+
+// onlySpots reports whether no sweep of the lot is a curve.
+func onlySpots(s *report.Sheet) bool {
+	only := true
+	counted(s, func(sw *report.Sweep) { only = only && sw.Direction == record.Spot })
+	return only
 }
 
 // someAbove reports whether a device is known not to reach the current.
@@ -247,13 +284,39 @@ func limitsOf(s *report.Sheet, by fit.Key) (low, high float64) {
 	return s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
 }
 
-// inTime gives all lots for the run of lots.
-func inTime(ref *report.Sheet, cands []report.Sheet) []compare.Lot {
-	lots := []compare.Lot{comparedLot(ref)}
-	for i := range cands {
-		lots = append(lots, comparedLot(&cands[i]))
+// runOfLots lays the lots of the part out in time: the two that were compared, and
+// every other that was measured as they were; nil where there is no other.
+func (e *Env) runOfLots(ctx context.Context, ref, cand *report.Sheet, by fit.Key, o SheetOptions) (*compare.Trend, error) {
+	var names []string
+	if err := e.view(ctx, func(tx *store.Tx) (err error) {
+		names, err = tx.LotsOfPart(ref.Part.ID)
+		return err
+	}); err != nil {
+		return nil, err
 	}
-	return lots
+	lots := []compare.Lot{comparedLot(ref), comparedLot(cand)}
+	for _, name := range names {
+		if name == ref.Lot.Name || name == cand.Lot.Name {
+			continue
+		}
+		s, err := e.candidateSheet(ctx, ref, name, o)
+		if err != nil {
+			return nil, err
+		}
+		if differ, _ := unlikeLots(ref, &s, by, false); differ == nil && hasAny(&s, by) {
+			lots = append(lots, comparedLot(&s))
+		} else {
+			e.detail("lot %s is not in the run of lots: it was not measured as lot %s was", report.Clean(name), report.Clean(ref.Lot.Name))
+		}
+	}
+	if len(lots) < 3 {
+		return nil, nil
+	}
+	t, err := compare.TrendOf(lots, optionsOf(ref, by, CompareRequest{Level: 95}))
+	if err != nil {
+		return nil, failed("", "the run of lots: %w", err)
+	}
+	return &t, nil
 }
 
 // alikeParts refuses lots of different parts. A lot for which no part was named

@@ -2,6 +2,7 @@ package job
 
 import (
 	"context"
+	"math"
 	"slices"
 
 	"gatesill/fit"
@@ -70,7 +71,7 @@ func ownRepeatability(runs []sittingRun) map[fit.Key]gauge.Repeatability {
 	known := map[fit.Key]gauge.Repeatability{}
 	like, _ := mostly(runs)
 	for _, key := range repeatedKeys {
-		if r := gauge.StudyOf(measurings(like, key)).Repeatability; r.Enough() {
+		if r := gauge.StudyOf(measurings(like, key), math.NaN()).Repeatability; r.Enough() {
 			known[key] = r
 		}
 	}

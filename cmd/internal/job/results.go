@@ -196,7 +196,11 @@ func (e *Env) reportSheet(ctx context.Context, name, reference string, o SheetOp
 		return s, err
 	}
 	c, err := compareSheets(&ref, &s, by, rq)
+	if err != nil {
+		return s, err
+	}
 	s.Compared = &c
+	s.Trend, err = e.runOfLots(ctx, &ref, &s, by, o)
 	return s, err
 }
 

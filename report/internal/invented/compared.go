@@ -77,14 +77,14 @@ func Compared(reference, candidate report.Sheet, o Against) report.Compared {
 	c.Secondary = []compare.Secondary{{Test: "invented test on ranks", Statistic: 412, P: c.P * 1.1, PAdjusted: math.Min(1, c.P*2.2)}, {Test: "invented test on whole distributions", Statistic: 0.31, P: nan, PAdjusted: nan}}
 	c.Common = compare.Common{U: 0.0013, Basis: "sessions of one bench", OffsetU: nan}
 	c.Curves = band(reference, candidate)
-	c.Gain = &compare.Gain{Key: fit.KeyBeta, Percent: compare.Interval{Value: 1.2, Low: -0.4, High: 2.8}, P: 0.14, N: [2]int{c.Counts[0].WithValue, c.Counts[1].WithValue}, Adjusted: true, Text: "no difference of drive strength is seen at equal threshold"}
+	c.Gain = &compare.Gain{Key: fit.KeyBeta, Percent: compare.Interval{Value: 1.2, Low: -0.4, High: 2.8}, P: 0.14, N: [2]int{c.Counts[0].WithValue, c.Counts[1].WithValue}, Adjusted: true, Text: "at equal threshold no difference of the gain factor is seen: +1.2 %, 95 % interval -0.4 to +2.8 %"}
 	c.Options = []compare.Option{
 		{Name: "take it as it is", Text: fmt.Sprintf("with the old network the idle current moves from 250 mA to %.0f mA at the centre", 250*(1-c.Shift*2)), Rule: "covered by the margin"},
 		{Name: "re-adjust", Text: fmt.Sprintf("the trimmers move by %.0f mV at the centre", 1e3*c.Shift)},
 		{Name: "send back", Text: "no rule of yours is broken", Rule: "outside-margin: not met"},
 	}
 	if o.Paired {
-		c.Paired = &compare.Paired{Pairs: min(c.Counts[0].WithValue, c.Counts[1].WithValue), Why: "34 serials stand in both lots and their values go together", OnlyRef: []string{"D39"}, OnlyNew: []string{"X1", "X2"}, SD: 0.0011}
+		c.Paired = &compare.Paired{Pairs: min(c.Counts[0].WithValue, c.Counts[1].WithValue), Why: "34 serials stand in both lots and their values go together", OnlyRef: []string{"D39"}, OnlyNew: []string{"X1", "X2"}, SD: 0.0011, Own: compare.Interval{Value: c.Shift + 0.002, Low: c.Shift + 0.001, High: c.Shift + 0.003}}
 		c.Raw = c.Shift + 0.002
 		c.Common = compare.Common{U: 0.0004, Basis: "control parts", Controls: 2, Offset: -0.002, OffsetU: 0.0004}
 	}
