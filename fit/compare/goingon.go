@@ -179,8 +179,8 @@ func (c *comparing) changeResistor(b biases) Option {
 		o.Text = fmt.Sprintf("lot %s has no centre at the idle current: too many devices do not reach it", c.cand.lot.Name)
 		return o
 	}
-	o.Text = fmt.Sprintf("the gate voltage of the divider must move by %s, from %s to %s (%+.1f %%)",
-		shiftWords(b.new-b.old), volts(b.old), volts(b.new), 100*(b.new/b.old-1))
+	o.Text = fmt.Sprintf("the gate voltage of the divider must move by %s, from %s to %s",
+		shiftWords(b.new-b.old), volts(b.old), volts(b.new))
 	if r := c.out.Spread.Value; !math.IsNaN(r) {
 		o.Text += fmt.Sprintf("; trimmers then need the reach that they had, times %.2f, the ratio of the spreads", r)
 	}

@@ -177,7 +177,7 @@ func (c *comparing) takeOff() {
 		return
 	}
 	warmer := c.cand.lot.Temp - c.ref.lot.Temp
-	if math.IsNaN(warmer) {
+	if math.IsNaN(warmer) || math.IsInf(warmer, 0) {
 		c.warn(fit.CodeUnlikeConditions, "the temperature of one of the lots is not known: nothing was taken off the shift for it")
 		return
 	}

@@ -37,9 +37,6 @@ func signed(v float64) string {
 // rangeWords writes the ends of an interval of shifts.
 func rangeWords(low, high float64) string { return signed(low) + " to " + signed(high) + " mV" }
 
-// percentWords writes a fraction without decimals where it is large.
-func percentWords(f float64) string { return strconv.FormatFloat(f*100, 'f', -1, 64) + " %" }
-
 // levelWords writes a level of confidence.
 func levelWords(level float64) string {
 	return strconv.FormatFloat(math.Round(level*1e6)/1e4, 'g', 6, 64) + " %"
