@@ -42,10 +42,11 @@ type pairDoc struct {
 }
 
 type secondaryDoc struct {
-	Test      string `json:"test"`
-	Statistic number `json:"statistic"`
-	P         number `json:"p"`
-	PAdjusted number `json:"p_adjusted"`
+	Test      string      `json:"test"`
+	Statistic number      `json:"statistic"`
+	P         number      `json:"p"`
+	PAdjusted number      `json:"p_adjusted"`
+	Shift     intervalDoc `json:"shift_V"` // nulls: the test has none
 }
 
 type optionDoc struct {
@@ -115,7 +116,7 @@ func compareMembers(s *Sheet) []member {
 	counts := func(k compare.Counts) countsDoc { return countsDoc(k) }
 	secondary, options := []secondaryDoc{}, []optionDoc{}
 	for _, t := range c.Secondary {
-		secondary = append(secondary, secondaryDoc{t.Test, number(t.Statistic), number(t.P), number(t.PAdjusted)})
+		secondary = append(secondary, secondaryDoc{t.Test, number(t.Statistic), number(t.P), number(t.PAdjusted), intervalDocOf(t.Shift)})
 	}
 	for _, o := range c.Options {
 		options = append(options, optionDoc{o.Name, o.Text, optional(o.Rule)})

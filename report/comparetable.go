@@ -115,7 +115,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	if len(c.Secondary) > 0 {
 		p.line("")
 		p.line("%s", style.paint("Secondary tests (they decide nothing; p adjusted for their number)", bold))
-		p.grid(secondaryGrid(c.Secondary, style))
+		p.grid(secondaryGrid(c.Secondary, c.Level, style))
 	}
 	waysOn(p, s, style)
 	own := slices.DeleteFunc(slices.Clone(c.Warnings), func(w fit.Warning) bool { return slices.Contains(ofAll, w) })
@@ -308,8 +308,8 @@ func bandGrid(b *compare.Band, style Style) grid {
 	}}
 }
 
-func secondaryGrid(list []compare.Secondary, style Style) grid {
-	var tests, stats, ps, adjusted []string
+func secondaryGrid(list []compare.Secondary, level float64, style Style) grid {
+	var tests, shifts, stats, ps, adjusted []string
 	for _, t := range list {
 		tests = append(tests, Clean(t.Test))
 		stat := ""
@@ -317,10 +317,16 @@ func secondaryGrid(list []compare.Secondary, style Style) grid {
 			stat = strconv.FormatFloat(roundTo(t.Statistic, 3), 'g', -1, 64)
 		}
 		stats = append(stats, stat)
+		shift := ""
+		if isNumber(t.Shift.Value) {
+			shift = ShiftWords(t.Shift.Value, t.Shift.Low, t.Shift.High, "V")
+		}
+		shifts = append(shifts, shift)
 		ps, adjusted = append(ps, ProbabilityWords(t.P)), append(adjusted, ProbabilityWords(t.PAdjusted))
 	}
 	return grid{style: style, cols: []column{
-		{head: "test", cells: tests, wrap: 40}, {head: "statistic", cells: stats, right: true, rank: 1},
+		{head: "test", cells: tests, wrap: 32}, {head: "shift (" + LevelWords(level) + " interval)", cells: shifts, right: true},
+		{head: "statistic", cells: stats, right: true, rank: 1},
 		{head: "p", cells: ps, right: true}, {head: "adjusted", cells: adjusted, right: true},
 	}}
 }

@@ -59,7 +59,9 @@ func Lots(reference, candidate Lot, opt Options) (Comparison, error) {
 	c.beside()
 	c.out.Curves = c.curves()
 	c.out.Gain = c.gain()
-	c.out.Options = c.goingOn()
+	if c.pairs == nil { // of the same devices nothing is to be taken, sorted or sent back
+		c.out.Options = c.goingOn()
+	}
 	return c.out, nil
 }
 

@@ -95,11 +95,13 @@ type Counts struct {
 }
 
 // Secondary is a test beside the primary one. PAdjusted is by Holm over all
-// secondary tests of the comparison.
+// secondary tests of the comparison. What control parts and temperature take off is
+// taken off here too; the error common to whole lots is in none of them.
 type Secondary struct {
 	Test      string
 	Statistic float64
-	P         float64 // two-sided; NaN: could not be had
+	Shift     Interval // V, that the test goes with, at the level of the comparison; NaN: none
+	P         float64  // two-sided; NaN: could not be had
 	PAdjusted float64
 }
 
