@@ -28,7 +28,8 @@ type sharing struct {
 //
 // The session part is what the uncertainty between sessions holds beside that
 // within one, the gain part what the absolute one holds beside that; for each the
-// median over the devices is taken.
+// median over the devices is taken. What a gain that both lots share does to the
+// shift itself (0.3 % of it) is left out.
 func sharingOf(l *Lot, of []*Member, by fit.Key, scale func(v float64) float64) sharing {
 	s := sharing{session: map[string]float64{}, meters: map[string]float64{}}
 	own := "\x00" + l.Name
