@@ -198,7 +198,7 @@ func acceptMembers(a *plan.Accept) []member {
 		{"sigma_known_V", number(a.KnownSigma)}, {"n", known(a.N)}, {"needed_n", known(a.Needed)}, {"plan_n", a.Plan.N}, {"k", number(a.Plan.K)},
 		{"accepts_good", number(a.AtGood)}, {"accepts_bad", number(a.AtBad)}, {"bad_share_accepted_95", number(a.Often)}, {"bad_share_accepted_10", number(a.Seldom)},
 		{"counting_n", known(a.CountN)}, {"counting_most_bad", most2},
-		{"decision", optional(a.Decision)}, {"undecided", optional(a.Undecided)}, {"lot_n", known(a.Lot.N)}, {"mean_V", lotNumber(a.Lot, a.Lot.Mean)}, {"sd_V", lotNumber(a.Lot, a.Lot.SD)},
+		{"decision", optional(a.Decision)}, {"undecided", optional(a.Undecided)}, {"accepts_bad_lot_n", number(a.BadWithThose)}, {"lot_n", known(a.Lot.N)}, {"mean_V", lotNumber(a.Lot, a.Lot.Mean)}, {"sd_V", lotNumber(a.Lot, a.Lot.SD)},
 		{"limit_low_V", number(a.Low)}, {"limit_high_V", number(a.High)}, {"q_low", number(qLow)}, {"q_high", number(qHigh)},
 		{"bad_share_estimated", number(estimated)}, {"bad_share_most", number(most)}, {"normal_p", number(a.Normality.P)}, {"operating_characteristic", rowsOf(curve)},
 	}

@@ -97,10 +97,8 @@ func about(x float64) string {
 }
 
 func (p *planPrinter) find(f *plan.Find) {
-	bad := share(f.Bad) + " are bad"
-	where := "Where " + bad
+	where := "Where " + share(f.Bad) + " are bad"
 	if f.BadCount > 0 {
-		bad = fmt.Sprintf("%d of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 		where = fmt.Sprintf("With %d bad of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 	}
 	risk := 1 - f.Confidence
@@ -269,7 +267,7 @@ func (p *planPrinter) same(s *plan.Same) {
 	}
 	switch {
 	case s.Hopeless:
-		p.answer("%d of either lot cannot show it: they would, %s, %s of the time.", s.Few, truth, Chance(s.Chance))
+		p.answer("%d of either lot cannot show that the shift is within ±%s (%s): %s they would %s of the time.", s.Few, margin, sd, truth, Chance(s.Chance))
 	case s.N > 0:
 		p.answer("%d of either lot show that the shift is within ±%s %s of the time, %s (%s).", s.N, margin, Chance(s.Chance), truth, sd)
 	}

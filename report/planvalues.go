@@ -248,6 +248,9 @@ func (p *planPrinter) decision(a *plan.Accept, k string) {
 	j := a.Judgement
 	if a.Decision == plan.Undecided {
 		p.answer("%s: not decided, %s.", a.Lot.Name, a.Undecided)
+		if isNumber(a.BadWithThose) {
+			p.say("--n %d decides with those; a lot with %s bad is then accepted %s of the time.", a.Lot.N, share(a.Bad), Chance(a.BadWithThose))
+		}
 	} else {
 		p.answer("%s: %s (%s, V_GS(th) against %s).", a.Lot.Name, string(a.Decision), count(a.Lot.N, "device"), limitWords(a.Low, a.High))
 	}

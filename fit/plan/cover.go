@@ -80,11 +80,9 @@ func ToCover(r CoverRequest) (*Cover, error) {
 	}
 	if x := r.Lot.Values; len(x) >= 2 {
 		c.Normality = normalityOf(x)
-		for _, iv := range []Interval{
+		c.Intervals = []Interval{
 			{stats.NormalTolerance(x, stats.Both, r.Share, r.Confidence), false},
 			{stats.FreeTolerance(x, stats.Both, r.Share, r.Confidence), true},
-		} {
-			c.Intervals = append(c.Intervals, iv)
 		}
 	}
 	return c, nil
