@@ -102,6 +102,9 @@ func gaugeGrid(g Gauge, style Style) grid {
 		n    string
 	}
 	list := []line{{"same device put in again", st.Repeatability.Estimate, st.Repeatability.Basis}}
+	if len(st.Odd) > 0 {
+		list = append(list, line{"the same with all devices", st.Whole.Estimate, st.Whole.Basis})
+	}
 	for _, f := range st.Factors {
 		list = append(list, line{"between " + f.Name + "s", f.SD, fmt.Sprintf("%d %ss", len(f.Levels), f.Name)})
 	}

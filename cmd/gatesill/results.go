@@ -57,7 +57,10 @@ one sentence each: those that are broken or leak, and those outside the family b
 gate voltage, by gain (gain factor, transconductance at the idle current) or by
 the whole curve, where it is not what threshold and gain let expect. The default
 limits depend on the size of the lot and on how many of these its devices have,
-so that at most 2 % of clean lots get any false flag.`,
+so that at most 2 % of clean lots get any false flag. Two populations are told by
+a test that fewer than 1 % of lots of one population pass. Where the part has
+limits, every device gets a verdict by the guard band stored with the lot (lot
+edit --guard), and the lot its Ppk and tolerance interval.`,
 		Example: `  gatesill spread bag1
   gatesill spread bag1 --limit 6 --fail --json`,
 		Args: exactly(1),

@@ -1,7 +1,6 @@
 package compare
 
 import (
-	"fmt"
 	"math"
 
 	"gatesill/fit"
@@ -25,8 +24,8 @@ func (c *comparing) beside() {
 		c.out.Secondary[i].PAdjusted = a
 	}
 	if c.ref.counts.Above+c.cand.counts.Above > 0 {
-		c.warn(fit.CodeAboveRange, fmt.Sprintf("%s never reach the current: they count as above every value, and tests that need their values have no number",
-			devices(c.ref.counts.Above+c.cand.counts.Above)))
+		c.warn(fit.CodeAboveRange, neverReach(c.ref.counts.Above+c.cand.counts.Above)+
+			": that counts as above every value, and tests that need the values themselves have no number")
 	}
 }
 

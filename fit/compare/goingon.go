@@ -152,7 +152,7 @@ func (c *comparing) reAdjust(b biases) Option {
 		o.Text += fmt.Sprintf(", and from %s to %s for 95 %% of the lot with 95 %% confidence if it lies like a normal distribution", volts(low), volts(high))
 	}
 	if b.above > 0 {
-		o.Text += fmt.Sprintf("; %s never reach the idle current and need more", devices(b.above))
+		o.Text += fmt.Sprintf("; %s the idle current and %s more", stand(b.above, "device never reaches", "devices never reach"), map[bool]string{true: "needs", false: "need"}[b.above == 1])
 	}
 	return o
 }
@@ -179,16 +179,12 @@ func (c *comparing) changeResistor(b biases) Option {
 		o.Text = fmt.Sprintf("lot %s has no centre at the idle current: too many devices do not reach it", c.cand.lot.Name)
 		return o
 	}
-	o.Text = fmt.Sprintf("the gate voltage of the divider must move by %s, from %s to %s (%+.1f %%); trimmers then need the reach that they had, times %s",
-		shiftWords(b.new-b.old), volts(b.old), volts(b.new), 100*(b.new/b.old-1), ratioWords(c.out.Spread.Value))
-	return o
-}
-
-func ratioWords(r float64) string {
-	if math.IsNaN(r) {
-		return "a ratio of the spreads that is not known"
+	o.Text = fmt.Sprintf("the gate voltage of the divider must move by %s, from %s to %s",
+		shiftWords(b.new-b.old), volts(b.old), volts(b.new))
+	if r := c.out.Spread.Value; !math.IsNaN(r) {
+		o.Text += fmt.Sprintf("; trimmers then need the reach that they had, times %.2f, the ratio of the spreads", r)
 	}
-	return fmt.Sprintf("%.2f", r)
+	return o
 }
 
 // sortFirst says how many bins there are, and how many devices lie where the
@@ -264,7 +260,7 @@ func (c *comparing) sendBack() Option {
 			o.Text = fmt.Sprintf("%s%s of %d outside %s: %s", broken, stand(len(out), "device", "devices"), len(c.cand.x), limits, firstOf(out, 5))
 		}
 		if n := c.cand.counts.Above; n > 0 {
-			o.Text += fmt.Sprintf("; of %s that never reach the current it is not known", devices(n))
+			o.Text += "; " + neverReach(n) + ", which leaves it open"
 		}
 	case ByMargin:
 		switch c.out.Verdict {

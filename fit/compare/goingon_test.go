@@ -41,7 +41,7 @@ func TestIdleAtOldVoltage(t *testing.T) {
 		i := idleAt(&c, gate, 0.25, nan, false)
 		want := 1.9 * (gate - vt) * (gate - vt)
 		near(t, fmt.Sprint("along the curve at ", gate), i.i/want, 1, 1e-3)
-		if i.how != "its own curve" {
+		if i.how != "their own curves" {
 			t.Error(i.how)
 		}
 	}

@@ -40,13 +40,13 @@ func idleAt(m *Member, gate, idle, beta float64, pchannel bool) idling {
 	r := &m.Result
 	own, _, _ := lot.Read(r, fit.KeyVgsIdle)
 	if i, beyond, ok := alongCurve(r, sign*own, sign*gate, idle, sign); ok {
-		return idling{i, beyond, "its own curve"}
+		return idling{i, beyond, "their own curves"}
 	}
 	if math.IsNaN(own) || !(idle > 0) {
 		return idling{math.NaN(), 0, ""}
 	}
 	more := sign * (gate - own)
-	b, theta, how := math.Abs(r.Beta.Value), math.Max(0, math.Abs(r.Theta.Value)), "its gain factor"
+	b, theta, how := math.Abs(r.Beta.Value), math.Max(0, math.Abs(r.Theta.Value)), "their gain factors"
 	if math.IsNaN(theta) {
 		theta = 0
 	}
@@ -61,7 +61,7 @@ func idleAt(m *Member, gate, idle, beta float64, pchannel bool) idling {
 		return idling{b * v * v / (2 * (1 + theta*v)), 0, how}
 	}
 	if d := math.Abs(r.GmIdle.Value) * more; math.Abs(d) <= smallDrift*idle {
-		return idling{idle + d, 0, "its transconductance"}
+		return idling{idle + d, 0, "their transconductance"}
 	}
 	return idling{math.NaN(), 0, ""}
 }

@@ -137,7 +137,7 @@ func (c *comparing) primary() {
 	c.out.Centre = [2]float64{refMean.Mean, candMean.Mean}
 	var nu float64
 	if p := c.pairs; p != nil {
-		c.out.Test = "trimmed means (20 %) of differences by serial, Tukey and McLaughlin"
+		c.out.Test = "20 % trimmed mean of the differences by serial, after Tukey and McLaughlin"
 		c.shift = within(trimmedMean(p.d, 0))
 		c.out.Common, nu = c.commonOf(p.ref, p.cand)
 	} else {
@@ -177,7 +177,7 @@ func (c *comparing) takeOff() {
 		return
 	}
 	warmer := c.cand.lot.Temp - c.ref.lot.Temp
-	if math.IsNaN(warmer) {
+	if math.IsNaN(warmer) || math.IsInf(warmer, 0) {
 		c.warn(fit.CodeUnlikeConditions, "the temperature of one of the lots is not known: nothing was taken off the shift for it")
 		return
 	}
@@ -206,7 +206,7 @@ func (c *comparing) whyNoShift() string {
 		case p.out.Pairs < fewest:
 			return fmt.Sprintf("%s with a value in both lots, and %d are needed", stand(p.out.Pairs, "serial", "serials"), fewest)
 		case !c.shift.ok() && len(p.d) > 0 && p.endless > cut(len(p.d)):
-			return fmt.Sprintf("%s that in one of the lots never reach the current, more than the share of 20 %% that a trimmed mean leaves out, so that there is no shift to be had", stand(p.endless, "serial", "serials"))
+			return fmt.Sprintf("%s belong to devices that in one of the lots never reach the current, more than the share of 20 %% that a trimmed mean leaves out, so that there is no shift to be had", stand(p.endless, "serial", "serials"))
 		}
 	} else {
 		for _, v := range []*values{c.ref, c.cand} {

@@ -4,8 +4,6 @@ import (
 	"fmt"
 	"math"
 	"strconv"
-
-	"gatesill/fit"
 )
 
 // volts writes a gate voltage.
@@ -38,9 +36,6 @@ func signed(v float64) string {
 
 // rangeWords writes the ends of an interval of shifts.
 func rangeWords(low, high float64) string { return signed(low) + " to " + signed(high) + " mV" }
-
-// percentWords writes a fraction without decimals where it is large.
-func percentWords(f float64) string { return strconv.FormatFloat(f*100, 'f', -1, 64) + " %" }
 
 // levelWords writes a level of confidence.
 func levelWords(level float64) string {
@@ -81,6 +76,11 @@ func stand(n int, one, more string) string {
 
 func devices(n int) string { return stand(n, "device", "devices") }
 
+// neverReach says that so many devices do not come to the current.
+func neverReach(n int) string {
+	return stand(n, "device never reaches", "devices never reach") + " the current"
+}
+
 // higher says which way a shift goes: more gate voltage or less.
 func (c *comparing) higher(shift float64) string {
 	if c.ref.lot.PChannel {
@@ -90,12 +90,4 @@ func (c *comparing) higher(shift float64) string {
 		return "less"
 	}
 	return "more"
-}
-
-// symbol is the quantity as short as it can be.
-func symbol(k fit.Key) string {
-	if k == fit.KeyVgsIdle {
-		return "gate bias"
-	}
-	return "V_GS(th)"
 }

@@ -59,8 +59,10 @@ func (r Repeatability) Enough() bool {
 // Study is what measurings of one lot say of the bench.
 type Study struct {
 	Repeatability Repeatability
-	MoreDevices   int // to be put in again before it is enough; 0: none
-	MoreRepeats   int // insertions wanted besides, of any device that has been in already
+	Whole         Repeatability // with the devices of Odd in it
+	Odd           []string      // devices that repeat far worse than the others, left out of Repeatability
+	MoreDevices   int           // to be put in again before it is enough; 0: none
+	MoreRepeats   int           // insertions wanted besides, of any device that has been in already
 	Factors       []Factor
 	AtOneTemp     bool     // values were brought to one temperature for the factors
 	TempsApart    float64  // K, by how much temperatures differ that were not corrected for; NaN: not all are known
@@ -71,6 +73,8 @@ type Study struct {
 	Categories    int      // groups of devices that the bench can tell apart; -1: could not be had
 	Order         Order
 	Warnings      []fit.Warning
+
+	kept []Measuring // what all this rests on
 }
 
 // Counts is the smallest difference between two devices read once each that

@@ -22,6 +22,10 @@
 // told by a test of its own, which fewer than 1 % of lots of one population pass,
 // also where they are spread evenly over a range (sorted by their seller) or have
 // such tails; lots of fewer than 8 are never parted.
+//
+// [SpecOf] holds a lot against the limits of its data sheet by the rule that is stored
+// with it. It gives verdicts on devices and what follows for the parts that were not
+// measured; what is to be done is the reader's to decide.
 package lot
 
 import (

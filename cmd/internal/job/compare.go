@@ -89,6 +89,9 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
 		env.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
 	}
+	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
+		env.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
+	}
 	sheets := make([]report.Sheet, len(candidates))
 	for i, name := range candidates {
 		if sheets[i], err = env.candidateSheet(ctx, &ref, name, o); err != nil {
@@ -116,6 +119,9 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 		trend, err := compare.TrendOf(lots, optionsOf(&ref, by, rq))
 		if err != nil {
 			return failed("", "the run of lots: %w", err)
+		}
+		if rq.Tempco.IsKnown() {
+			trend.Text = append(trend.Text, "the run of lots and its pairs are as read: the temperature is taken off the shifts against the reference lot only")
 		}
 		cl.Trend = &trend
 	}
@@ -225,6 +231,9 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, failed("", "lot %q against %q: %w", cand.Lot.Name, ref.Lot.Name, err)
 	}
 	out.Warnings = append(warnings, out.Warnings...)
+	if out.Paired != nil {
+		out.Warnings = append(out.Warnings, changedPairs(ref, cand, by, rq)...)
+	}
 	if onlySpots(ref) && onlySpots(cand) { // nobody expects curves of them
 		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
 	}

@@ -169,15 +169,17 @@ func (t sittings) name(sw *record.Sweep) string {
 }
 
 // metersText writes bench and meters that enter a gate voltage at a current; ""
-// where no meter is named.
+// where neither the bench nor one of them has a name.
 func metersText(bench string, meters []record.Instrument) string {
 	var words []string
+	named := bench != ""
 	for _, m := range meters {
-		if (m.Role == "gate" || m.Role == "current" || m.Role == "load" || m.Role == "drain") && m.Name+m.Serial != "" {
+		if m.Role == "gate" || m.Role == "current" || m.Role == "load" || m.Role == "drain" {
 			words = append(words, strings.TrimSpace(m.Role+" "+m.Name+" "+m.Serial))
+			named = named || m.Name+m.Serial != ""
 		}
 	}
-	if words == nil {
+	if words == nil || !named {
 		return ""
 	}
 	slices.Sort(words)
