@@ -140,7 +140,7 @@ func coverMembers(c *plan.Cover) []member {
 		{"lot", optional(c.Lot.Name)}, {"share", number(c.Share)}, {"confidence", number(c.Confidence)}, {"n", known(c.N)},
 		{"needed_n_two_limits", known(c.FreeBoth)}, {"needed_n_one_limit", known(c.FreeOne)},
 		{"share_two_limits", number(c.ShareBoth)}, {"share_one_limit", number(c.ShareOne)},
-		{"normal_p", number(c.Normality.P)}, {"factors", rowsOf(factors)}, {"intervals", rowsOf(intervals)},
+		{"normal_p", number(c.Normality.P)}, {"declined", optional(c.Declined)}, {"factors", rowsOf(factors)}, {"intervals", rowsOf(intervals)},
 	}
 }
 
@@ -154,21 +154,17 @@ func capabilityMembers(c *plan.Capability) []member {
 	for _, r := range c.Rows {
 		must = append(must, mustDoc{r.N, number(r.Ppk)})
 	}
-	ppk, pp := c.Index.Cpk, c.Index.Cp
-	if c.TooFew {
-		ppk, pp = math.NaN(), math.NaN() // declined
-	}
 	return []member{
 		{"lot", optional(c.Lot.Name)}, {"ppk_target", number(c.Target)}, {"ppk_expected", number(c.Expected)}, {"confidence", number(c.Confidence)},
 		{"n", known(c.N)}, {"needed_n", known(c.Needed)}, {"ppk_bound_expected", number(c.Bound)}, {"n_too_small", c.TooFew},
-		{"limit_low_V", number(c.Low)}, {"limit_high_V", number(c.High)}, {"ppk", number(ppk)}, {"pp", number(pp)}, {"ppk_bound", number(c.BoundOf)},
-		{"proven", proven(c)}, {"normal_p", number(c.Normality.P)}, {"must_show", rowsOf(must)},
+		{"limit_low_V", number(c.Low)}, {"limit_high_V", number(c.High)}, {"ppk", number(c.Index.Cpk)}, {"pp", number(c.Index.Cp)}, {"ppk_bound", number(c.BoundOf)},
+		{"proven", proven(c)}, {"declined", optional(c.Declined)}, {"normal_p", number(c.Normality.P)}, {"must_show", rowsOf(must)},
 	}
 }
 
 // proven is null where no lot was judged.
 func proven(c *plan.Capability) any {
-	if c.Lot.Name == "" || c.TooFew {
+	if c.Lot.Name == "" || c.Declined != "" {
 		return nil
 	}
 	return c.Proven

@@ -284,18 +284,3 @@ func (p *planPrinter) same(s *plan.Same) {
 	p.trimming(s.NeededT, s.Needed, s.N, s.ChanceT)
 	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
 }
-
-// doubts says where values are not normal.
-func (p *planPrinter) doubts(n plan.Normality, l plan.Lot) {
-	if n.Doubts {
-		p.line("")
-		p.say("Caution: the values of %s are not normal (Anderson-Darling, p %s); what rests on that does not hold for them.", l.Name, pValue(n.P))
-	}
-}
-
-func pValue(x float64) string {
-	if x < 0.0001 {
-		return "below 0.0001"
-	}
-	return fmt.Sprintf("%.2g", x)
-}

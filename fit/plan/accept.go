@@ -179,12 +179,13 @@ func (a *Accept) judge(known bool) {
 		a.SigmaDoubt = stats.ChiSquareUpper(df*l.SD*l.SD/(sd*sd), df) < 0.01
 	}
 	a.Judgement = plan.Judge(l.Mean, sd, l.N, a.Low, a.High)
+	if why := l.unfit(a.Normality); why != "" && a.Undecided == "" {
+		a.Undecided = why
+	}
 	switch {
 	case a.Undecided != "":
 	case !a.Judgement.Computable:
 		a.Undecided = "its values have no spread to judge by, or are too few"
-	case a.Normality.Doubts:
-		a.Undecided = "the rule is for normal values, and these are not"
 	case a.Judgement.Accept:
 		a.Decision = Accepted
 	default:
