@@ -94,7 +94,7 @@ func reachDocs(list []plan.Reach) rows {
 
 func shiftMembers(s *plan.Shift) []member {
 	return []member{
-		{"lot", optional(s.Lot.Name)}, {"shift_V", number(s.Shift)}, {"sd_V", number(s.SD)}, {"risk", number(s.Risk)}, {"confidence", number(s.Confidence)},
+		{"lot", optional(s.Lot.Name)}, {"quantity", optional(s.Lot.Of)}, {"shift_V", number(s.Shift)}, {"sd_V", number(s.SD)}, {"risk", number(s.Risk)}, {"confidence", number(s.Confidence)},
 		{"n", known(s.N)}, {"needed_n", known(s.Needed)}, {"needed_n_plain_means", known(s.NeededT)},
 		{"power", number(s.Power)}, {"power_plain_means", number(s.PowerT)}, {"sees", reachDocs(s.Smallest)},
 		{"sd_high_V", number(s.SDHigh)}, {"needed_n_sd_high", known(s.NeededHigh)},
@@ -103,7 +103,7 @@ func shiftMembers(s *plan.Shift) []member {
 
 func sameMembers(s *plan.Same) []member {
 	return []member{
-		{"lot", optional(s.Lot.Name)}, {"margin_V", number(s.Margin)}, {"sd_V", number(s.SD)}, {"shift_V", number(s.Shift)}, {"risk", number(s.Risk)},
+		{"lot", optional(s.Lot.Name)}, {"quantity", optional(s.Lot.Of)}, {"margin_V", number(s.Margin)}, {"sd_V", number(s.SD)}, {"shift_V", number(s.Shift)}, {"risk", number(s.Risk)},
 		{"level", number(s.Level)}, {"n", known(s.N)}, {"needed_n", known(s.Needed)}, {"needed_n_plain_means", known(s.NeededT)},
 		{"few_n", s.Few}, {"few_shows", number(s.Chance)}, {"few_shows_plain_means", number(s.ChanceT)}, {"shows", reachDocs(s.Smallest)},
 		{"sd_high_V", number(s.SDHigh)}, {"needed_n_sd_high", known(s.NeededHigh)},
@@ -137,7 +137,7 @@ func coverMembers(c *plan.Cover) []member {
 		intervals = append(intervals, planIntervalDoc{rule, number(iv.Low), number(iv.High), number(iv.K), number(iv.Confidence)})
 	}
 	return []member{
-		{"lot", optional(c.Lot.Name)}, {"share", number(c.Share)}, {"confidence", number(c.Confidence)}, {"n", known(c.N)},
+		{"lot", optional(c.Lot.Name)}, {"quantity", optional(c.Lot.Of)}, {"share", number(c.Share)}, {"confidence", number(c.Confidence)}, {"n", known(c.N)},
 		{"needed_n_two_limits", known(c.FreeBoth)}, {"needed_n_one_limit", known(c.FreeOne)},
 		{"share_two_limits", number(c.ShareBoth)}, {"share_one_limit", number(c.ShareOne)},
 		{"normal_p", number(c.Normality.P)}, {"declined", optional(c.Declined)}, {"factors", rowsOf(factors)}, {"intervals", rowsOf(intervals)},

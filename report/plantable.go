@@ -178,10 +178,10 @@ func (p *planPrinter) zeroTable(f *plan.Find) {
 	}
 }
 
-// spread says which standard deviation was planned with.
+// spreadWords says which standard deviation was planned with.
 func spreadWords(sd float64, l plan.Lot) string {
 	if l.Name != "" {
-		return fmt.Sprintf("sd %s from %s of %s", about(sd), count(l.N, "device"), l.Name)
+		return fmt.Sprintf("sd %s of %s from %s of %s", about(sd), l.Of, count(l.N, "device"), l.Name)
 	}
 	return "sd " + given(sd)
 }

@@ -59,7 +59,7 @@ func (p *planPrinter) coverLot(c *plan.Cover, what string) {
 		p.answer("%s: no limits that hold %s, %s.", c.Lot.Name, what, c.Declined)
 		return
 	}
-	p.answer("Limits that hold %s, from %s of %s:", what, count(c.Lot.N, "device"), c.Lot.Name)
+	p.answer("Limits of %s that hold %s, from %s of %s:", c.Lot.Of, what, count(c.Lot.N, "device"), c.Lot.Name)
 	rule, low, high := column{head: "by"}, column{head: "low"}, column{head: "high"}
 	for _, iv := range c.Intervals {
 		name := "mean ± " + factor(iv.K) + " sd"

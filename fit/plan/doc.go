@@ -58,6 +58,7 @@ func (e *Invalid) Error() string { return e.Input + ": " + e.Why }
 // Lot is a sample that is at hand already; the zero Lot is none.
 type Lot struct {
 	Name   string
+	Of     string  // what was measured: "V_GS(th)"
 	N      int     // devices with a value
 	Mean   float64 // V
 	SD     float64 // V, between devices

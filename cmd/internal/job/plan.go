@@ -241,7 +241,7 @@ func sampleOf(s *report.Sheet, key fit.Key) plan.Lot {
 		}
 	}
 	l := plan.LotOf(s.Lot.Name, values)
-	l.Mixed = s.Spread.Populations > 1
+	l.Of, l.Mixed = report.KeyOf(key).Symbol, s.Spread.Populations > 1
 	return l
 }
 
