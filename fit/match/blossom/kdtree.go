@@ -1,0 +1,179 @@
+package blossom
+
+import (
+	"cmp"
+	"math"
+	"slices"
+)
+
+// tree halves points along their widest coordinate down to a few. It serves
+// the search for neighbours and the search for pairs that duals find wanting.
+type tree struct {
+	at    [][]float64
+	order []int32 // points; every cell is a range of it
+	place []int32 // by point: where it stands in order
+	cells []cell  // cell i has the halves of itself at i+1 and at far
+	lows  []float64
+	highs []float64 // by cell and coordinate: its box
+}
+
+type cell struct {
+	from, to int32
+	far      int32 // 0: not halved any more
+	most     int64 // greatest dual of a point in it
+}
+
+const cellSize = 8
+
+func newTree(at [][]float64) *tree {
+	t := &tree{at: at, order: make([]int32, len(at)), place: make([]int32, len(at))}
+	for i := range t.order {
+		t.order[i] = int32(i)
+	}
+	if len(at) > 0 {
+		t.build(0, len(at))
+	}
+	for p, i := range t.order {
+		t.place[i] = int32(p)
+	}
+	return t
+}
+
+func (t *tree) build(from, to int) {
+	c := len(t.cells)
+	t.cells = append(t.cells, cell{from: int32(from), to: int32(to)})
+	part := t.order[from:to]
+	widest, width := -1, 0.0
+	for k := range t.at[part[0]] {
+		lo, hi := math.Inf(1), math.Inf(-1)
+		for _, i := range part {
+			lo, hi = min(lo, t.at[i][k]), max(hi, t.at[i][k])
+		}
+		t.lows, t.highs = append(t.lows, lo), append(t.highs, hi)
+		if hi-lo > width {
+			widest, width = k, hi-lo
+		}
+	}
+	if to-from <= cellSize || widest < 0 {
+		return
+	}
+	slices.SortFunc(part, func(a, b int32) int { return cmp.Compare(t.at[a][widest], t.at[b][widest]) })
+	mid := (from + to) / 2
+	t.build(from, mid)
+	t.cells[c].far = int32(len(t.cells))
+	t.build(mid, to)
+}
+
+// gap gives how far point x is outside the box of cell c in coordinate k.
+func (t *tree) gap(c int, k int, x float64) float64 {
+	i := c*len(t.at[0]) + k
+	return max(t.lows[i]-x, x-t.highs[i], 0)
+}
+
+type neighbour struct {
+	d float64
+	i int32
+}
+
+// nearest appends to out the k points nearest to point p by the square of the
+// straight distance between coordinates.
+func (t *tree) nearest(p int32, k int, out []neighbour) []neighbour {
+	x := t.at[p]
+	var visit func(c int, d float64)
+	square := func(c int) float64 {
+		var d float64
+		for i, v := range x {
+			g := t.gap(c, i, v)
+			d += g * g
+		}
+		return d
+	}
+	visit = func(c int, d float64) {
+		if len(out) == k && d >= out[k-1].d {
+			return
+		}
+		e := &t.cells[c]
+		if e.far != 0 {
+			near, far := c+1, int(e.far)
+			dn, df := square(near), square(far)
+			if df < dn {
+				near, far, dn, df = far, near, df, dn
+			}
+			visit(near, dn)
+			visit(far, df)
+			return
+		}
+		for _, q := range t.order[e.from:e.to] {
+			if q == p {
+				continue
+			}
+			var d float64
+			for i, v := range t.at[q] {
+				d += (v - x[i]) * (v - x[i])
+			}
+			if len(out) == k && d >= out[k-1].d {
+				continue
+			}
+			if len(out) < k {
+				out = append(out, neighbour{})
+			}
+			j := len(out) - 1
+			for ; j > 0 && out[j-1].d > d; j-- {
+				out[j] = out[j-1]
+			}
+			out[j] = neighbour{d, q}
+		}
+	}
+	visit(0, 0)
+	return out
+}
+
+// setDuals notes the greatest dual in every cell.
+func (t *tree) setDuals(y []int64) {
+	for c := len(t.cells) - 1; c >= 0; c-- {
+		e := &t.cells[c]
+		if e.far != 0 {
+			e.most = max(t.cells[c+1].most, t.cells[e.far].most)
+			continue
+		}
+		e.most = math.MinInt64
+		for _, q := range t.order[e.from:e.to] {
+			e.most = max(e.most, y[q])
+		}
+	}
+}
+
+// visitClose calls see for every point after p in order for which the doubled
+// distance may be less than the sum of the two duals, where a distance is at
+// least scale times the greatest gap of a coordinate, less one for rounding.
+func (t *tree) visitClose(p int32, y int64, scale float64, see func(q int32)) {
+	x := t.at[p]
+	after := t.place[p] + 1
+	var visit func(c int)
+	visit = func(c int) {
+		e := &t.cells[c]
+		if e.to <= after {
+			return
+		}
+		if scale > 0 {
+			most := float64(y+e.most)/2 + 1
+			if most <= 0 {
+				return
+			}
+			for k, v := range x {
+				if scale*t.gap(c, k, v) > most*(1+1e-9) {
+					return
+				}
+			}
+		}
+		if e.far != 0 {
+			visit(c + 1)
+			visit(int(e.far))
+			return
+		}
+		for i := max(e.from, after); i < e.to; i++ {
+			see(t.order[i])
+		}
+	}
+	visit(0)
+}
