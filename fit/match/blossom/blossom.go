@@ -149,8 +149,8 @@ func doubled(cost []int64) []int64 {
 	return limit
 }
 
-func constant(n int, p int64) []int64 {
-	a := make([]int64, n)
+func constant[T any](n int, p T) []T {
+	a := make([]T, n)
 	for i := range a {
 		a[i] = p
 	}

@@ -171,19 +171,20 @@ func (c *Cloud) wanting(ctx context.Context, t *tree, s *solver, within int64) (
 	}
 	var more []Edge
 	var worst []found
-	t.setDuals(s.y)
+	in := s.nest()
+	t.setDuals(s.y, in)
 	for p := range int32(s.n) {
 		if p&255 == 0 && ctx.Err() != nil {
 			return nil, ctx.Err()
 		}
 		worst = worst[:0]
-		t.visitClose(p, s.y[p], c.Scale, func(q int32) {
+		t.visitClose(p, s.y[p], in, c.Scale, func(q int32) {
 			w := c.Distance(int(p), int(q))
 			k := 2*w - s.y[p] - s.y[q]
 			if k >= 0 || w > within {
 				return
 			}
-			if k += s.around(p, q); k < 0 {
+			if k += in.around(p, q); k < 0 {
 				worst = append(worst, found{Edge{int(p), int(q), w}, k})
 			}
 		})

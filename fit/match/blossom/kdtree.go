@@ -21,6 +21,8 @@ type cell struct {
 	from, to int32
 	far      int32 // 0: not halved any more
 	most     int64 // greatest dual of a point in it
+
+	first, last int32 // where its points stand in the nest of blossoms
 }
 
 const cellSize = 8
@@ -128,27 +130,31 @@ func (t *tree) nearest(p int32, k int, out []neighbour) []neighbour {
 	return out
 }
 
-// setDuals notes the greatest dual in every cell.
-func (t *tree) setDuals(y []int64) {
+// setDuals notes the greatest dual in every cell, and its range in the nest.
+func (t *tree) setDuals(y []int64, in *nest) {
 	for c := len(t.cells) - 1; c >= 0; c-- {
 		e := &t.cells[c]
 		if e.far != 0 {
-			e.most = max(t.cells[c+1].most, t.cells[e.far].most)
+			a, b := &t.cells[c+1], &t.cells[e.far]
+			e.most, e.first, e.last = max(a.most, b.most), min(a.first, b.first), max(a.last, b.last)
 			continue
 		}
-		e.most = math.MinInt64
+		e.most, e.first, e.last = math.MinInt64, math.MaxInt32, 0
 		for _, q := range t.order[e.from:e.to] {
 			e.most = max(e.most, y[q])
+			e.first, e.last = min(e.first, in.pos[q]), max(e.last, in.pos[q])
 		}
 	}
 }
 
 // visitClose calls see for every point after p in order for which the doubled
-// distance may be less than the sum of the two duals, where a distance is at
-// least scale times the greatest gap of a coordinate, less one for rounding.
-func (t *tree) visitClose(p int32, y int64, scale float64, see func(q int32)) {
+// distance may be less than the sum of the two duals without the blossoms
+// around both, where a distance is at least scale times the greatest gap of a
+// coordinate, less one for rounding.
+func (t *tree) visitClose(p int32, y int64, in *nest, scale float64, see func(q int32)) {
 	x := t.at[p]
 	after := t.place[p] + 1
+	pos := in.pos[p]
 	var visit func(c int)
 	visit = func(c int) {
 		e := &t.cells[c]
@@ -156,7 +162,8 @@ func (t *tree) visitClose(p int32, y int64, scale float64, see func(q int32)) {
 			return
 		}
 		if scale > 0 {
-			most := float64(y+e.most)/2 + 1
+			around := in.between(min(pos, e.first), max(pos, e.last))
+			most := float64(y+e.most-around)/2 + 1
 			if most <= 0 {
 				return
 			}

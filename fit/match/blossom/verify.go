@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"math/big"
+	"slices"
 )
 
 // ErrProof says that a result is not what it claims to be, or not shown to be.
@@ -194,11 +195,17 @@ func mates(n int, r *Result) error {
 	return nil
 }
 
-// duals are those of a result, with the odd sets that each vertex is in.
+// duals are those of a result, with the odd sets, each inside the next one of
+// those it meets, as a forest.
 type duals struct {
-	y    []int64
-	sets []Blossom
-	in   [][]int32
+	y      []int64
+	sets   []Blossom
+	inside []int   // by vertex: the smallest set with it, -1 without
+	above  []int   // by set: the next greater set around it, -1 without
+	order  []int   // sets, none before the one above it
+	seen   int     // the vertex that shared is for
+	holds  []int   // by set: the last vertex for which shared was summed up that it holds
+	shared []int64 // by set: sum of the duals of the sets that hold it and vertex seen
 }
 
 // tooGreat is beyond every dual, so that sums of a few cannot overflow.
@@ -213,41 +220,68 @@ func dualsOf(n int, r *Result) (*duals, error) {
 			return nil, fmt.Errorf("%w: vertex %d: dual %d", ErrProof, v, y)
 		}
 	}
-	d := &duals{r.Dual, r.Blossoms, make([][]int32, n)}
-	for b, set := range r.Blossoms {
+	d := &duals{y: r.Dual, sets: r.Blossoms, seen: -1}
+	d.inside, d.above, d.order = constant(n, -1), constant(len(d.sets), -1), make([]int, len(d.sets))
+	d.shared, d.holds = make([]int64, len(d.sets)), constant(len(d.sets), -1)
+	for b := range d.order {
+		d.order[b] = b
+	}
+	slices.SortStableFunc(d.order, func(a, b int) int { return len(d.sets[b].Vertices) - len(d.sets[a].Vertices) })
+	deep := make([]int64, len(d.sets)) // sum of the duals of a set and those around it
+	for _, b := range d.order {
+		set := d.sets[b]
 		if len(set.Vertices)%2 == 0 || set.Dual < 0 || set.Dual > tooGreat {
 			return nil, fmt.Errorf("%w: blossom %d: %d vertices, dual %d", ErrProof, b, len(set.Vertices), set.Dual)
 		}
-		for _, v := range set.Vertices {
-			if v < 0 || v >= n {
-				return nil, fmt.Errorf("%w: blossom %d: vertex %d of %d", ErrProof, b, v, n)
+		for i, v := range set.Vertices {
+			if v < 0 || v >= n || d.inside[v] == b {
+				return nil, fmt.Errorf("%w: blossom %d: vertex %d of %d, or twice", ErrProof, b, v, n)
 			}
-			if k := len(d.in[v]); k > 0 && d.in[v][k-1] == int32(b) {
-				return nil, fmt.Errorf("%w: blossom %d: vertex %d twice", ErrProof, b, v)
+			if i == 0 {
+				d.above[b] = d.inside[v]
+			} else if d.inside[v] != d.above[b] {
+				return nil, fmt.Errorf("%w: blossom %d crosses another at vertex %d", ErrProof, b, v)
 			}
-			d.in[v] = append(d.in[v], int32(b))
+			d.inside[v] = b
+		}
+		deep[b] = set.Dual
+		if a := d.above[b]; a >= 0 {
+			deep[b] += deep[a]
+		}
+		if deep[b] > 2*tooGreat {
+			return nil, fmt.Errorf("%w: blossom %d: duals from there outwards sum up to %d", ErrProof, b, deep[b])
 		}
 	}
 	return d, nil
 }
 
-// slack gives 2 w − y_i − y_j + Σ z of the sets with both. The sum stops once
-// it makes the slack positive, so that it cannot overflow.
+// slack gives 2 w − y_i − y_j + Σ z of the sets with both.
 func (d *duals) slack(i, j int, w int64) int64 {
+	if d.seen != i {
+		d.see(i)
+	}
 	s := 2*w - d.y[i] - d.y[j]
-	a, b := d.in[i], d.in[j] // both ascending
-	for len(a) > 0 && len(b) > 0 && s <= 0 {
-		switch {
-		case a[0] < b[0]:
-			a = a[1:]
-		case a[0] > b[0]:
-			b = b[1:]
-		default:
-			s += d.sets[a[0]].Dual
-			a, b = a[1:], b[1:]
-		}
+	if b := d.inside[j]; b >= 0 {
+		s += d.shared[b]
 	}
 	return s
+}
+
+// see sums up, for every set, the duals of the sets that hold it and vertex i.
+func (d *duals) see(i int) {
+	d.seen = i
+	for b := d.inside[i]; b >= 0; b = d.above[b] {
+		d.holds[b] = i
+	}
+	for _, b := range d.order {
+		d.shared[b] = 0
+		if a := d.above[b]; a >= 0 {
+			d.shared[b] = d.shared[a]
+		}
+		if d.holds[b] == i {
+			d.shared[b] += d.sets[b].Dual
+		}
+	}
 }
 
 // feasible checks the slack of every pair and shows the pair to see.
