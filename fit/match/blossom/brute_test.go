@@ -2,22 +2,15 @@ package blossom
 
 import (
 	"context"
+	"errors"
 	"math"
 	"math/rand/v2"
 	"testing"
 )
 
-// bruteBest tries all matchings of n <= 14 vertices: for every set of vertices
-// the cheapest way to pair some of them and to leave out the rest at cost.
-// merge joins the value of a pair to that of the rest.
-type bruteValue struct {
-	left int
-	sum  int64
-	bad  bool
-}
-
-// brute gives, by number of vertices left out, the least total of the pairs,
-// with each pair weighed by weigh; never where there is no such matching.
+// brute tries all matchings, and gives by number of vertices left out the least
+// that joining the weights of the pairs comes to: never where there is no such
+// matching, MinInt64 for no pairs.
 func brute(n int, edges []Edge, join func(a, b int64) int64) []int64 {
 	w := make([][]int64, n)
 	for i := range w {
@@ -98,7 +91,7 @@ func drawn(rng *rand.Rand, most int) (int, []Edge) {
 func TestAgainstAllMatchings(t *testing.T) {
 	rng := rand.New(rand.NewPCG(1, 7))
 	ctx := context.Background()
-	perfect := 0
+	perfect, odd := 0, 0
 	for trial := range 6000 {
 		size := 8
 		if trial%20 == 0 {
@@ -139,8 +132,115 @@ func TestAgainstAllMatchings(t *testing.T) {
 				t.Fatalf("trial %d: perfect: %v", trial, err)
 			}
 		}
+		odd += len(r.Blossoms)
+	}
+	if odd < 1000 {
+		t.Errorf("%d blossoms only", odd)
 	}
 	if perfect < 1000 {
 		t.Errorf("%d perfect matchings only", perfect)
+	}
+}
+
+// TestLeaveOutAgainstAllMatchings: a cost of a is a second copy of the graph
+// away from brute force, so costs are put into the weights: leaving out v costs
+// c_v is pairing u and v at w − c_u − c_v, all left out as the start.
+func TestLeaveOutAgainstAllMatchings(t *testing.T) {
+	rng := rand.New(rand.NewPCG(2, 7))
+	bound := 0
+	for trial := range 4000 {
+		n, edges := drawn(rng, 9)
+		span := int64(1)
+		for _, e := range edges {
+			span = max(span, e.Weight)
+		}
+		cost := make([]int64, n)
+		var all int64
+		must := make([]bool, n)
+		for v := range cost {
+			cost[v] = rng.Int64N(2*span) - span/3
+			if rng.IntN(6) == 0 {
+				must[v] = true
+				cost[v] = 1 << 40 // for brute force: more than all else together
+			}
+			all += cost[v]
+		}
+		moved := make([]Edge, len(edges))
+		for i, e := range edges {
+			moved[i] = Edge{e.U, e.V, e.Weight - cost[e.U] - cost[e.V]}
+		}
+		want := int64(math.MaxInt64)
+		for _, w := range brute(n, moved, plus) {
+			switch w {
+			case never:
+			case math.MinInt64:
+				want = min(want, all)
+			default:
+				want = min(want, all+w)
+			}
+		}
+		for v := range must {
+			if must[v] {
+				cost[v] = Never
+			}
+		}
+		r, err := LeaveOut(context.Background(), n, edges, cost)
+		if want > 1<<39 {
+			if !errors.Is(err, ErrNoPerfect) {
+				t.Fatalf("trial %d: %v although a vertex that must be in cannot", trial, err)
+			}
+			bound++
+			continue
+		}
+		if err != nil {
+			t.Fatalf("trial %d: %v", trial, err)
+		}
+		got := r.Total
+		for v, m := range r.Mate {
+			if m < 0 {
+				got += cost[v]
+			}
+		}
+		if got != want {
+			t.Fatalf("trial %d: %d, want %d\n%d %v %v", trial, got, want, n, edges, cost)
+		}
+		if err := Verify(n, Along(edges), cost, r); err != nil {
+			t.Fatalf("trial %d: %v", trial, err)
+		}
+	}
+	if bound < 100 {
+		t.Errorf("%d impossible graphs only", bound)
+	}
+}
+
+func TestBottleneckAgainstAllMatchings(t *testing.T) {
+	rng := rand.New(rand.NewPCG(3, 7))
+	for trial := range 3000 {
+		size := 8
+		if trial%10 == 0 {
+			size = 13
+		}
+		n, edges := drawn(rng, size)
+		worst := brute(n, edges, most)
+		fewest := 0
+		for worst[fewest] == never {
+			fewest++
+		}
+		r, err := Bottleneck(context.Background(), n, edges)
+		if err != nil {
+			t.Fatal(err)
+		}
+		want, total := worst[fewest], int64(0)
+		if want == math.MinInt64 {
+			want = 0
+		} else {
+			total = brute(n, upTo(edges, want), plus)[fewest]
+		}
+		if r.LeftOut != fewest || r.Worst != want || r.Total != total {
+			t.Fatalf("trial %d: %d left out, worst %d, total %d; want %d, %d, %d\n%d %v", trial, r.LeftOut, r.Worst, r.Total, fewest, want, total, n, edges)
+		}
+		if err := VerifyBottleneck(n, Along(edges), fewest, r); err != nil {
+			t.Fatalf("trial %d: %v\n%d %v", trial, err, n, edges)
+		}
 	}
 }

@@ -1,7 +1,6 @@
 package blossom
 
 import (
-	"cmp"
 	"context"
 	"errors"
 	"fmt"
@@ -150,7 +149,7 @@ func (c *Cloud) match(ctx context.Context, t *tree, edges []Edge, within int64) 
 		if err != nil {
 			return s.result(p), err
 		}
-		more, err := c.wanting(ctx, t, s, within)
+		more, err := c.wanting(ctx, t, s, within, 1)
 		if err != nil || len(more) == 0 {
 			r := s.result(p)
 			r.Work.Rounds = round
@@ -162,36 +161,38 @@ func (c *Cloud) match(ctx context.Context, t *tree, edges []Edge, within int64) 
 	}
 }
 
-// wanting gives pairs with negative slack, the worst few of each point; none
-// if and only if the duals are feasible for all pairs up to within.
-func (c *Cloud) wanting(ctx context.Context, t *tree, s *solver, within int64) ([]Edge, error) {
-	type found struct {
-		e     Edge
-		slack int64
-	}
+// wanting gives pairs up to within with negative slack, the worst few of each
+// point; none if and only if the duals are feasible for all pairs up to within.
+// The weight of a pair is factor times its distance, factor being 1 or 0.
+func (c *Cloud) wanting(ctx context.Context, t *tree, s *solver, within, factor int64) ([]Edge, error) {
 	var more []Edge
-	var worst []found
+	var worst [perVertex]Edge
+	var slack [perVertex]int64
 	in := s.nest()
 	t.setDuals(s.y, in)
 	for p := range int32(s.n) {
 		if p&255 == 0 && ctx.Err() != nil {
 			return nil, ctx.Err()
 		}
-		worst = worst[:0]
-		t.visitClose(p, s.y[p], in, c.Scale, func(q int32) {
+		n := 0
+		t.visitClose(p, s.y[p], in, c.Scale, within, factor, func(q int32) {
 			w := c.Distance(int(p), int(q))
-			k := 2*w - s.y[p] - s.y[q]
+			k := 2*w*factor - s.y[p] - s.y[q]
 			if k >= 0 || w > within {
 				return
 			}
-			if k += in.around(p, q); k < 0 {
-				worst = append(worst, found{Edge{int(p), int(q), w}, k})
+			k += in.around(p, q)
+			if k >= 0 || n == perVertex && k >= slack[n-1] {
+				return
 			}
+			n = min(n+1, perVertex)
+			i := n - 1
+			for ; i > 0 && slack[i-1] > k; i-- {
+				worst[i], slack[i] = worst[i-1], slack[i-1]
+			}
+			worst[i], slack[i] = Edge{int(p), int(q), w}, k
 		})
-		slices.SortFunc(worst, func(a, b found) int { return cmp.Compare(a.slack, b.slack) })
-		for _, f := range worst[:min(perVertex, len(worst))] {
-			more = append(more, f.e)
-		}
+		more = append(more, worst[:n]...)
 	}
 	return more, c.check(more)
 }

@@ -147,11 +147,11 @@ func (t *tree) setDuals(y []int64, in *nest) {
 	}
 }
 
-// visitClose calls see for every point after p in order for which the doubled
-// distance may be less than the sum of the two duals without the blossoms
-// around both, where a distance is at least scale times the greatest gap of a
-// coordinate, less one for rounding.
-func (t *tree) visitClose(p int32, y int64, in *nest, scale float64, see func(q int32)) {
+// visitClose calls see for every point after p in order that is not farther
+// than within and for which factor times the doubled distance may be less than
+// the sum of the two duals without the blossoms around both. A distance is at
+// least scale times the greatest gap of a coordinate, less one for rounding.
+func (t *tree) visitClose(p int32, y int64, in *nest, scale float64, within, factor int64, see func(q int32)) {
 	x := t.at[p]
 	after := t.place[p] + 1
 	pos := in.pos[p]
@@ -161,9 +161,15 @@ func (t *tree) visitClose(p int32, y int64, in *nest, scale float64, see func(q 
 		if e.to <= after {
 			return
 		}
+		room := y + e.most - in.between(min(pos, e.first), max(pos, e.last))
+		if factor == 0 && room <= 0 {
+			return
+		}
 		if scale > 0 {
-			around := in.between(min(pos, e.first), max(pos, e.last))
-			most := float64(y+e.most-around)/2 + 1
+			most := float64(within) + 1
+			if factor != 0 {
+				most = min(most, float64(room)/2+1)
+			}
 			if most <= 0 {
 				return
 			}
