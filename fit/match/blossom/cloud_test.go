@@ -2,6 +2,7 @@ package blossom
 
 import (
 	"context"
+	"errors"
 	"fmt"
 	"math"
 	"math/rand/v2"
@@ -64,46 +65,108 @@ func cloud(rng *rand.Rand, kind, norm string, n, d int) *Cloud {
 	return &Cloud{At: at, Distance: dist, Scale: 1e6}
 }
 
-func BenchmarkPairs5000(b *testing.B) {
-	for _, kind := range []string{"uniform", "normal", "clusters", "steps", "coarse"} {
-		for _, norm := range []string{"L2", "max", "L1"} {
-			b.Run(fmt.Sprintf("%s/%s", kind, norm), func(b *testing.B) {
-				c := cloud(rand.New(rand.NewPCG(5, 5000)), kind, norm, 5000, 2)
-				var r *Result
-				for b.Loop() {
-					var err error
-					if r, err = c.Match(context.Background()); err != nil {
-						b.Fatal(err)
-					}
-				}
-				b.ReportMetric(float64(r.Work.Rounds), "rounds")
-				b.ReportMetric(float64(r.Work.Edges), "edges")
-				b.ReportMetric(float64(r.Work.Searches), "searches")
-				b.ReportMetric(float64(len(r.Blossoms)), "blossoms")
-			})
-		}
-	}
-}
+var kinds = []string{"uniform", "normal", "clusters", "steps", "coarse"}
 
+// TestCloudIsProved: Verify looks at all pairs, the driver at few of them.
 func TestCloudIsProved(t *testing.T) {
 	rng := rand.New(rand.NewPCG(3, 1))
-	for _, kind := range []string{"uniform", "normal", "clusters", "steps", "coarse"} {
+	ctx := context.Background()
+	rounds := 0
+	for _, kind := range kinds {
 		for _, norm := range []string{"L1", "L2", "max"} {
-			for _, n := range []int{0, 1, 2, 3, 40, 301} {
+			for _, n := range []int{0, 1, 2, 3, 40, 121} {
 				for _, d := range []int{1, 2, 5, 20} {
+					name := fmt.Sprintf("%s %s, %d points, %d quantities", kind, norm, n, d)
 					c := cloud(rng, kind, norm, n, d)
-					r, err := c.Match(context.Background())
+					r, err := c.Match(ctx)
 					if err != nil {
 						t.Fatal(err)
 					}
 					if r.LeftOut != n%2 {
-						t.Errorf("%s %s %d points: %d left out", kind, norm, n, r.LeftOut)
+						t.Errorf("%s: %d left out", name, r.LeftOut)
 					}
 					if err := Verify(n, c.Pairs(), nil, r); err != nil {
-						t.Errorf("%s %s %d points, %d quantities: %v", kind, norm, n, d, err)
+						t.Errorf("%s: %v", name, err)
+					}
+					rounds = max(rounds, r.Work.Rounds)
+
+					blind := *c
+					blind.Scale = 0
+					if q, err := blind.Match(ctx); err != nil || q.Total != r.Total {
+						t.Errorf("%s: looking at every pair: %v, total %d and %d", name, err, q.Total, r.Total)
+					}
+
+					b, err := c.Bottleneck(ctx)
+					if err != nil {
+						t.Fatal(err)
+					}
+					if err := VerifyBottleneck(n, c.Pairs(), n%2, b); err != nil {
+						t.Errorf("%s: worst pair: %v", name, err)
+					}
+					if b.Worst > r.Worst || b.Total < r.Total {
+						t.Errorf("%s: worst %d, total %d, against %d, %d", name, b.Worst, b.Total, r.Worst, r.Total)
 					}
 				}
 			}
 		}
+	}
+	if rounds < 2 {
+		t.Error("no graph needed a second round")
+	}
+}
+
+// TestCloudWithinAndCost: pairs only up to a distance, and points that may
+// stay alone at a cost.
+func TestCloudWithinAndCost(t *testing.T) {
+	rng := rand.New(rand.NewPCG(4, 1))
+	ctx := context.Background()
+	several := 0
+	for _, kind := range kinds {
+		for _, n := range []int{30, 151} {
+			c := cloud(rng, kind, "L2", n, 2)
+			free, err := c.Match(ctx)
+			if err != nil {
+				t.Fatal(err)
+			}
+			c.Within = free.Worst/4 + 1
+			r, err := c.Match(ctx)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := Verify(n, c.Pairs(), nil, r); err != nil {
+				t.Errorf("%s, %d points within %d: %v", kind, n, c.Within, err)
+			}
+			if r.LeftOut > 1 {
+				several++
+			}
+			b, err := c.Bottleneck(ctx)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := VerifyBottleneck(n, c.Pairs(), r.LeftOut, b); err != nil {
+				t.Errorf("%s, %d points within %d: worst pair: %v", kind, n, c.Within, err)
+			}
+
+			c.Within = 0
+			c.Cost = make([]int64, n)
+			for v := range c.Cost {
+				if c.Cost[v] = rng.Int64N(free.Total / int64(n) * 2); v%10 == 0 {
+					c.Cost[v] = Never
+				}
+			}
+			l, err := c.Match(ctx)
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := Verify(n, c.Pairs(), c.Cost, l); err != nil {
+				t.Errorf("%s, %d points, costs: %v", kind, n, err)
+			}
+			if _, err := c.Bottleneck(ctx); !errors.Is(err, ErrGraph) {
+				t.Errorf("costs and worst pair: %v", err)
+			}
+		}
+	}
+	if several < 5 {
+		t.Errorf("more than one point left out in %d cases only", several)
 	}
 }
