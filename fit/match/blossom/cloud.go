@@ -8,6 +8,15 @@ import (
 	"slices"
 )
 
+// Norm is a way to measure the difference of two points.
+type Norm int
+
+const (
+	Greatest Norm = iota // the greatest difference of a coordinate; no other norm here is below it
+	Straight             // the root of the sum of the squares
+	Sum                  // the sum of the differences
+)
+
 // Cloud is a set of points of which any two may be paired at their distance.
 type Cloud struct {
 	// At has the coordinates of each point, equally many and finite. They serve
@@ -18,10 +27,11 @@ type Cloud struct {
 	// ways. It need not keep the triangle inequality.
 	Distance func(i, j int) int64
 
-	// Scale promises that Distance is at least Scale times the greatest
-	// difference of a coordinate, or at most one less, for rounding. With 0
+	// Scale promises that Distance is at least Scale times the Norm of the
+	// difference of the coordinates, or at most one less, for rounding. With 0
 	// nothing is promised, and every pair is looked at in each round.
 	Scale float64
+	Norm  Norm
 
 	// Within, if positive, is the greatest distance of a pair.
 	Within int64
@@ -175,7 +185,7 @@ func (c *Cloud) wanting(ctx context.Context, t *tree, s *solver, within, factor 
 			return nil, ctx.Err()
 		}
 		n := 0
-		t.visitClose(p, s.y[p], in, c.Scale, within, factor, func(q int32) {
+		t.visitClose(p, s.y[p], in, c.Norm, c.Scale, within, factor, func(q int32) {
 			w := c.Distance(int(p), int(q))
 			k := 2*w*factor - s.y[p] - s.y[q]
 			if k >= 0 || w > within {

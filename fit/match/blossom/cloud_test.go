@@ -43,26 +43,36 @@ func cloud(rng *rand.Rand, kind, norm string, n, d int) *Cloud {
 			}
 		}
 	}
-	dist := func(i, j int) int64 {
-		x, y := at[i], at[j]
-		var sum float64
-		for k := range x {
-			g := math.Abs(x[k] - y[k])
-			switch norm {
-			case "L1":
-				sum += g
-			case "L2":
-				sum += g * g
-			default:
-				sum = max(sum, g)
+	c := &Cloud{At: at, Scale: 1e6}
+	switch norm {
+	case "L1":
+		c.Norm = Sum
+		c.Distance = func(i, j int) int64 {
+			var sum float64
+			for k, v := range at[i] {
+				sum += math.Abs(v - at[j][k])
 			}
+			return int64(math.Round(1e6 * sum))
 		}
-		if norm == "L2" {
-			sum = math.Sqrt(sum)
+	case "L2":
+		c.Norm = Straight
+		c.Distance = func(i, j int) int64 {
+			var sum float64
+			for k, v := range at[i] {
+				sum += (v - at[j][k]) * (v - at[j][k])
+			}
+			return int64(math.Round(1e6 * math.Sqrt(sum)))
 		}
-		return int64(math.Round(sum * 1e6))
+	case "max":
+		c.Distance = func(i, j int) int64 {
+			var most float64
+			for k, v := range at[i] {
+				most = max(most, math.Abs(v-at[j][k]))
+			}
+			return int64(math.Round(1e6 * most))
+		}
 	}
-	return &Cloud{At: at, Distance: dist, Scale: 1e6}
+	return c
 }
 
 var kinds = []string{"uniform", "normal", "clusters", "steps", "coarse"}

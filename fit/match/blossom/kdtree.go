@@ -66,10 +66,34 @@ func (t *tree) build(from, to int) {
 	t.build(mid, to)
 }
 
-// gap gives how far point x is outside the box of cell c in coordinate k.
-func (t *tree) gap(c int, k int, x float64) float64 {
-	i := c*len(t.at[0]) + k
-	return max(t.lows[i]-x, x-t.highs[i], 0)
+// beyond says whether all points in the box of cell c are farther from x than
+// most, by the norm.
+func (t *tree) beyond(c int, x []float64, most float64, norm Norm) bool {
+	lows, highs := t.lows[c*len(x):][:len(x)], t.highs[c*len(x):][:len(x)]
+	var sum float64
+	if norm == Straight {
+		most *= most
+	}
+	for k, v := range x {
+		g := lows[k] - v
+		if g <= 0 {
+			if g = v - highs[k]; g <= 0 {
+				continue
+			}
+		}
+		switch norm {
+		case Straight:
+			sum += g * g
+		case Sum:
+			sum += g
+		default:
+			sum = g
+		}
+		if sum > most {
+			return true
+		}
+	}
+	return false
 }
 
 type neighbour struct {
@@ -83,10 +107,14 @@ func (t *tree) nearest(p int32, k int, out []neighbour) []neighbour {
 	x := t.at[p]
 	var visit func(c int, d float64)
 	square := func(c int) float64 {
+		lows, highs := t.lows[c*len(x):][:len(x)], t.highs[c*len(x):][:len(x)]
 		var d float64
 		for i, v := range x {
-			g := t.gap(c, i, v)
-			d += g * g
+			if g := lows[i] - v; g > 0 {
+				d += g * g
+			} else if g = v - highs[i]; g > 0 {
+				d += g * g
+			}
 		}
 		return d
 	}
@@ -150,8 +178,8 @@ func (t *tree) setDuals(y []int64, in *nest) {
 // visitClose calls see for every point after p in order that is not farther
 // than within and for which factor times the doubled distance may be less than
 // the sum of the two duals without the blossoms around both. A distance is at
-// least scale times the greatest gap of a coordinate, less one for rounding.
-func (t *tree) visitClose(p int32, y int64, in *nest, scale float64, within, factor int64, see func(q int32)) {
+// least scale times the norm of the difference, less one for rounding.
+func (t *tree) visitClose(p int32, y int64, in *nest, norm Norm, scale float64, within, factor int64, see func(q int32)) {
 	x := t.at[p]
 	after := t.place[p] + 1
 	pos := in.pos[p]
@@ -173,10 +201,8 @@ func (t *tree) visitClose(p int32, y int64, in *nest, scale float64, within, fac
 			if most <= 0 {
 				return
 			}
-			for k, v := range x {
-				if scale*t.gap(c, k, v) > most*(1+1e-9) {
-					return
-				}
+			if t.beyond(c, x, most/scale*(1+1e-9), norm) {
+				return
 			}
 		}
 		if e.far != 0 {
