@@ -142,9 +142,9 @@ func TestAgainstAllMatchings(t *testing.T) {
 	}
 }
 
-// TestLeaveOutAgainstAllMatchings: a cost of a is a second copy of the graph
-// away from brute force, so costs are put into the weights: leaving out v costs
-// c_v is pairing u and v at w − c_u − c_v, all left out as the start.
+// TestLeaveOutAgainstAllMatchings: for brute force the costs go into the
+// weights. With all vertices left out as the start, pairing u and v comes to
+// w − c_u − c_v.
 func TestLeaveOutAgainstAllMatchings(t *testing.T) {
 	rng := rand.New(rand.NewPCG(2, 7))
 	bound := 0

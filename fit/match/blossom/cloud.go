@@ -151,19 +151,23 @@ func (c *Cloud) match(ctx context.Context, t *tree, edges []Edge, within int64) 
 	}
 	s := newSolver(n, edges, limit)
 	s.start()
+	var last *Result
 	for round := 1; ; round++ {
 		err := s.solve(ctx, n)
 		if errors.Is(err, errTooMany) {
 			return nil, fmt.Errorf("%w of the points that must not be left out, %d in all", ErrNoPerfect, n)
 		}
 		if err != nil {
-			return s.result(p), err
+			if last == nil {
+				last = s.result(p)
+			}
+			return last, err
 		}
+		last = s.result(p)
+		last.Work.Rounds = round
 		more, err := c.wanting(ctx, t, s, within, 1)
 		if err != nil || len(more) == 0 {
-			r := s.result(p)
-			r.Work.Rounds = round
-			return r, err
+			return last, err
 		}
 		from := len(s.w2)
 		s.addEdges(more)

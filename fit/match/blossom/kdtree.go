@@ -56,10 +56,12 @@ func (t *tree) build(from, to int) {
 			widest, width = k, hi-lo
 		}
 	}
-	if to-from <= cellSize || widest < 0 {
+	if to-from <= cellSize {
 		return
 	}
-	slices.SortFunc(part, func(a, b int32) int { return cmp.Compare(t.at[a][widest], t.at[b][widest]) })
+	if widest >= 0 { // else all are at one place
+		slices.SortFunc(part, func(a, b int32) int { return cmp.Compare(t.at[a][widest], t.at[b][widest]) })
+	}
 	mid := (from + to) / 2
 	t.build(from, mid)
 	t.cells[c].far = int32(len(t.cells))
