@@ -51,9 +51,10 @@ type Edge struct {
 	Weight int64
 }
 
-// Blossom is an odd set of vertices with its doubled dual, which is positive.
+// Blossom is an odd set of vertices, those from place From up to, but without,
+// place To of a result's Line, with its doubled dual, which is positive.
 type Blossom struct {
-	Vertices []int
+	From, To int
 	Dual     int64
 }
 
@@ -65,7 +66,8 @@ type Result struct {
 	Worst   int64 // greatest weight of a pair; 0 when there is no pair
 
 	Dual     []int64   // by vertex: the doubled dual
-	Blossoms []Blossom // the odd sets with positive dual
+	Blossoms []Blossom // the odd sets with positive dual; any two are one in the other or apart
+	Line     []int     // all vertices, in an order in which every blossom is a range
 	Penalty  int64     // doubled cost at which leaving out any vertex was weighed; 0: costs were given, or every vertex had to be covered
 
 	// Witness proves for Bottleneck that the pairs lighter than Worst do not
@@ -227,15 +229,10 @@ func (s *solver) result(penalty int64) *Result {
 			pairs++
 		}
 	}
-	for b := s.n; b < len(s.parent); b++ {
-		if s.kids[b] == nil || s.z[b] <= 0 {
-			continue
-		}
-		set := make([]int, len(s.leaves[b]))
-		for i, v := range s.leaves[b] {
-			set[i] = int(v)
-		}
-		r.Blossoms = append(r.Blossoms, Blossom{set, s.z[b]})
+	in := s.nest()
+	r.Blossoms, r.Line = in.sets, make([]int, s.n)
+	for i, v := range in.line {
+		r.Line[i] = int(v)
 	}
 	return r
 }

@@ -2,36 +2,39 @@ package blossom
 
 import "math/bits"
 
-// nest answers what the blossoms around two vertices, or around a vertex and
-// the points of a cell, weigh together. Vertices are lined up so that every
-// blossom is a range; between neighbours stands the sum of the duals of the
+// nest lines up the vertices so that every blossom is a range. It answers what
+// the blossoms around two vertices, or around a vertex and the points of a
+// cell, weigh together: between neighbours stands the sum of the duals of the
 // blossoms with both, and the sum for two others is the least in between.
 type nest struct {
-	pos   []int32   // by vertex
+	line  []int32
+	pos   []int32 // by vertex: its place in the line
+	sets  []Blossom
 	least [][]int64 // at [k][i]: least of 2^k places from i on
 }
 
 func (s *solver) nest() *nest {
-	t := &nest{pos: make([]int32, s.n)}
-	base := make([]int64, 0, s.n)
-	// lay lines up the vertices of b, in blossoms that weigh sum together.
+	t := &nest{line: make([]int32, 0, s.n), pos: make([]int32, s.n)}
+	base := make([]int64, 0, s.n) // at i: what is around the vertices at i and i+1
+	// lay lines up the vertices of b, which is in blossoms that weigh sum together.
 	var lay func(b int32, sum int64)
 	lay = func(b int32, sum int64) {
+		from := len(t.line)
 		if s.kids[b] == nil {
-			t.pos[b] = int32(len(base))
-			base = append(base, sum) // between b and the next; the last of a blossom is put right there
-			return
+			t.pos[b] = int32(from)
+			t.line, base = append(t.line, b), append(base, 0)
 		}
 		for _, k := range s.kids[b] {
 			lay(k, sum+s.z[b])
-			base[len(base)-1] = sum + s.z[b]
 		}
-		base[len(base)-1] = sum
+		base[len(base)-1] = sum // until it is known what comes next, and where
+		if s.kids[b] != nil && s.z[b] > 0 {
+			t.sets = append(t.sets, Blossom{from, len(t.line), s.z[b]})
+		}
 	}
 	for v := range int32(s.n) {
 		if b := s.top[v]; s.base[b] == v {
 			lay(b, 0)
-			base[len(base)-1] = 0
 		}
 	}
 	t.least = append(t.least, base)

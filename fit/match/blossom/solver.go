@@ -28,9 +28,9 @@ const (
 // limits are doubled: every vertex of one search tree then has a dual of the
 // same parity, so that the half of a slack between two outer vertices is whole.
 //
-// Duals of nodes in the tree are brought up to date lazily: an outer vertex
-// whose dual was y at time since has y + now − since, an inner one
-// y − (now − since); a blossom's dual moves twice as fast.
+// Duals of what is in the tree are brought up to date lazily: a vertex in an
+// outer node that was up to date at time since has y + now − since, one in an
+// inner node y − (now − since); the dual of the node moves twice as fast.
 type solver struct {
 	n     int
 	end   []int32 // by half
@@ -38,15 +38,16 @@ type solver struct {
 	first []int32 // by vertex, n+1: where its halves begin in halves
 	halfs []int32 // halves grouped by the vertex that they leave
 
-	y, since []int64
-	limit    []int64 // doubled cost of leaving the vertex out; never: not allowed
-	match    []int32 // by vertex: the matched half that leaves it, or none
-	top      []int32 // by vertex: its outermost node
+	y     []int64 // by vertex
+	limit []int64 // by vertex: doubled cost of leaving it out; never: not allowed
+	match []int32 // by vertex: the matched half that leaves it, or none
+	top   []int32 // by vertex: its outermost node
 
 	parent, base []int32   // by node
 	kids, links  [][]int32 // by node: the cycle, kid 0 with the base; halves from kid i to kid i+1
 	leaves       [][]int32 // by node: the vertices in it
-	z, zsince    []int64   // by node, used for blossoms only
+	z            []int64   // by node, used for blossoms only
+	since        []int64   // by outermost node: when duals in it were up to date
 	label        []label   // by node, meaningful for outermost ones
 	entry        []int32   // by node: the half by which an inner node was reached
 	best         []int64   // by node: time of the earliest event that reaches it, while outside
@@ -69,8 +70,7 @@ type solver struct {
 func newSolver(n int, edges []Edge, limit []int64) *solver {
 	s := &solver{
 		n: n, limit: limit,
-		y: make([]int64, n), since: make([]int64, n),
-		match: make([]int32, n), top: make([]int32, n), one: make([]int32, n),
+		y: make([]int64, n), match: make([]int32, n), top: make([]int32, n), one: make([]int32, n),
 	}
 	for v := range n {
 		s.match[v], s.top[v], s.one[v] = none, int32(v), int32(v)
@@ -92,7 +92,7 @@ func (s *solver) addNode() int32 {
 	s.links = append(s.links, nil)
 	s.leaves = append(s.leaves, nil)
 	s.z = append(s.z, 0)
-	s.zsince = append(s.zsince, 0)
+	s.since = append(s.since, 0)
 	s.label = append(s.label, outside)
 	s.entry = append(s.entry, none)
 	s.best = append(s.best, never)
@@ -255,43 +255,44 @@ func (s *solver) meet(h int32) bool {
 	return false
 }
 
-func (s *solver) yNow(v int32) int64 {
-	switch s.label[s.top[v]] {
-	case outer:
-		return s.y[v] + s.now - s.since[v]
-	case inner:
-		return s.y[v] - s.now + s.since[v]
-	}
-	return s.y[v]
-}
-
-func (s *solver) zNow(b int32) int64 {
+// risen gives by how much the duals of vertices in outermost node b have grown
+// since they were up to date.
+func (s *solver) risen(b int32) int64 {
 	switch s.label[b] {
 	case outer:
-		return s.z[b] + 2*(s.now-s.zsince[b])
+		return s.now - s.since[b]
 	case inner:
-		return s.z[b] - 2*(s.now-s.zsince[b])
+		return s.since[b] - s.now
 	}
-	return s.z[b]
+	return 0
+}
+
+func (s *solver) yNow(v int32) int64 { return s.y[v] + s.risen(s.top[v]) }
+
+func (s *solver) zNow(b int32) int64 { return s.z[b] + 2*s.risen(b) }
+
+// settle brings the duals of outermost node b and of its vertices up to date.
+func (s *solver) settle(b int32) {
+	if d := s.risen(b); d != 0 {
+		for _, v := range s.leaves[b] {
+			s.y[v] += d
+		}
+		s.z[b] += 2 * d
+	}
+	s.since[b] = s.now
 }
 
 // becomeOuter labels outermost node b, whose duals are up to date.
 func (s *solver) becomeOuter(b int32) {
-	s.label[b], s.zsince[b] = outer, s.now
+	s.label[b], s.since[b] = outer, s.now
 	s.touched = append(s.touched, b)
-	for _, v := range s.leaves[b] {
-		s.since[v] = s.now
-	}
 	s.fresh = append(s.fresh, s.leaves[b]...)
 }
 
 // becomeInner labels outermost node b, reached by half h; its duals are up to date.
 func (s *solver) becomeInner(b, h int32) {
-	s.label[b], s.zsince[b], s.entry[b] = inner, s.now, h
+	s.label[b], s.since[b], s.entry[b] = inner, s.now, h
 	s.touched = append(s.touched, b)
-	for _, v := range s.leaves[b] {
-		s.since[v] = s.now
-	}
 	if s.kids[b] != nil {
 		if t := s.now + s.z[b]/2; t < s.bound {
 			s.events.push(event{t, open, b})
@@ -308,7 +309,7 @@ func (s *solver) scanFresh() {
 }
 
 func (s *solver) scan(v int32) {
-	y := s.y[v] + s.now - s.since[v]
+	y := s.yNow(v)
 	if s.limit[v] != never {
 		if t := s.now + s.limit[v] - y; t < s.bound {
 			s.bound = t
@@ -324,7 +325,7 @@ func (s *solver) scan(v int32) {
 		}
 		switch s.label[b] {
 		case outer:
-			slack := s.w2[h>>1] - y - s.y[u] - s.now + s.since[u]
+			slack := s.w2[h>>1] - y - s.y[u] - s.now + s.since[b]
 			if t := s.now + slack/2; t < s.bound {
 				s.events.push(event{t, meet, h})
 			}
@@ -365,16 +366,6 @@ func (s *solver) rest() {
 		s.best[b] = never
 	}
 	s.touched, s.reached, s.fresh = s.touched[:0], s.reached[:0], s.fresh[:0]
-}
-
-// settle brings the duals of outermost node b and of its vertices up to date.
-func (s *solver) settle(b int32) {
-	for _, v := range s.leaves[b] {
-		s.y[v] = s.yNow(v)
-		s.since[v] = s.now
-	}
-	s.z[b] = s.zNow(b)
-	s.zsince[b] = s.now
 }
 
 // dissolve opens outermost node b and what is in it while the dual is 0.

@@ -54,19 +54,16 @@ func (s *solver) shrink(h, head int32) {
 
 	s.kids[b], s.links[b] = cycle, halves
 	s.base[b], s.parent[b] = s.base[head], none
-	s.z[b], s.zsince[b], s.label[b] = 0, s.now, outer
+	s.z[b], s.since[b], s.label[b] = 0, s.now, outer
 	s.best[b] = never
 	s.touched = append(s.touched, b)
 	leaves := s.leaves[b][:0]
 	for _, k := range cycle {
-		from := len(leaves)
 		leaves = append(leaves, s.leaves[k]...)
 		if s.label[k] == inner {
-			s.settle(k)
-			s.fresh = append(s.fresh, leaves[from:]...)
-		} else if s.kids[k] != nil {
-			s.z[k] = s.zNow(k)
+			s.fresh = append(s.fresh, s.leaves[k]...)
 		}
+		s.settle(k)
 		s.parent[k], s.label[k] = b, outside
 	}
 	for _, v := range leaves {

@@ -1,6 +1,7 @@
 package blossom
 
 import (
+	"cmp"
 	"errors"
 	"fmt"
 	"math/big"
@@ -199,6 +200,8 @@ func mates(n int, r *Result) error {
 // those it meets, as a forest.
 type duals struct {
 	y      []int64
+	line   []int
+	place  []int // by vertex: where it stands in line
 	sets   []Blossom
 	inside []int   // by vertex: the smallest set with it, -1 without
 	above  []int   // by set: the next greater set around it, -1 without
@@ -220,36 +223,48 @@ func dualsOf(n int, r *Result) (*duals, error) {
 			return nil, fmt.Errorf("%w: vertex %d: dual %d", ErrProof, v, y)
 		}
 	}
-	d := &duals{y: r.Dual, sets: r.Blossoms, seen: -1}
-	d.inside, d.above, d.order = constant(n, -1), constant(len(d.sets), -1), make([]int, len(d.sets))
-	d.shared, d.holds = make([]int64, len(d.sets)), constant(len(d.sets), -1)
-	for b := range d.order {
-		d.order[b] = b
+	d := &duals{y: r.Dual, line: r.Line, sets: r.Blossoms, seen: -1}
+	d.place, d.inside, d.above = constant(n, -1), constant(n, -1), constant(len(d.sets), -1)
+	d.order, d.shared, d.holds = make([]int, len(d.sets)), make([]int64, len(d.sets)), constant(len(d.sets), -1)
+	if len(d.line) != n {
+		return nil, fmt.Errorf("%w: %d of %d vertices lined up", ErrProof, len(d.line), n)
 	}
-	slices.SortStableFunc(d.order, func(a, b int) int { return len(d.sets[b].Vertices) - len(d.sets[a].Vertices) })
+	for i, v := range d.line {
+		if v < 0 || v >= n || d.place[v] != -1 {
+			return nil, fmt.Errorf("%w: line: vertex %d of %d, or twice", ErrProof, v, n)
+		}
+		d.place[v] = i
+	}
+	for b, set := range d.sets {
+		d.order[b] = b
+		if set.From < 0 || set.To > n || set.To <= set.From || (set.To-set.From)%2 == 0 || set.Dual < 0 || set.Dual > tooGreat {
+			return nil, fmt.Errorf("%w: blossom %d: from %d to %d of %d, dual %d", ErrProof, b, set.From, set.To, n, set.Dual)
+		}
+	}
+	slices.SortFunc(d.order, func(a, b int) int {
+		x, y := d.sets[a], d.sets[b]
+		return cmp.Or(x.From-y.From, y.To-x.To, a-b)
+	})
 	deep := make([]int64, len(d.sets)) // sum of the duals of a set and those around it
+	around := -1                       // the set before, or one around it
 	for _, b := range d.order {
 		set := d.sets[b]
-		if len(set.Vertices)%2 == 0 || set.Dual < 0 || set.Dual > tooGreat {
-			return nil, fmt.Errorf("%w: blossom %d: %d vertices, dual %d", ErrProof, b, len(set.Vertices), set.Dual)
-		}
-		for i, v := range set.Vertices {
-			if v < 0 || v >= n || d.inside[v] == b {
-				return nil, fmt.Errorf("%w: blossom %d: vertex %d of %d, or twice", ErrProof, b, v, n)
-			}
-			if i == 0 {
-				d.above[b] = d.inside[v]
-			} else if d.inside[v] != d.above[b] {
-				return nil, fmt.Errorf("%w: blossom %d crosses another at vertex %d", ErrProof, b, v)
-			}
-			d.inside[v] = b
+		for around >= 0 && d.sets[around].To <= set.From {
+			around = d.above[around]
 		}
 		deep[b] = set.Dual
-		if a := d.above[b]; a >= 0 {
-			deep[b] += deep[a]
+		if around >= 0 {
+			if set.To > d.sets[around].To {
+				return nil, fmt.Errorf("%w: blossoms %d and %d cross", ErrProof, around, b)
+			}
+			deep[b] += deep[around]
 		}
 		if deep[b] > 2*tooGreat {
 			return nil, fmt.Errorf("%w: blossom %d: duals from there outwards sum up to %d", ErrProof, b, deep[b])
+		}
+		d.above[b], around = around, b
+		for _, v := range d.line[set.From:set.To] {
+			d.inside[v] = b
 		}
 	}
 	return d, nil
@@ -309,19 +324,15 @@ func (d *duals) feasible(pairs Pairs, see func(i, j int, w int64)) error {
 // full checks that of each odd set with a dual all vertices but one are paired
 // among themselves.
 func (d *duals) full(mate []int) error {
-	where := make([]int, len(mate))
 	for b, set := range d.sets {
-		for _, v := range set.Vertices {
-			where[v] = b + 1
-		}
 		single := 0
-		for _, v := range set.Vertices {
-			if mate[v] < 0 || where[mate[v]] != b+1 {
+		for _, v := range d.line[set.From:set.To] {
+			if m := mate[v]; m < 0 || d.place[m] < set.From || d.place[m] >= set.To {
 				single++
 			}
 		}
 		if single != 1 && set.Dual > 0 {
-			return fmt.Errorf("%w: blossom %d: %d of %d vertices are not paired inside", ErrProof, b, single, len(set.Vertices))
+			return fmt.Errorf("%w: blossom %d: %d of %d vertices are not paired inside", ErrProof, b, single, set.To-set.From)
 		}
 	}
 	return nil
@@ -335,7 +346,7 @@ func (d *duals) objective() *big.Int {
 	}
 	for _, set := range d.sets {
 		x.SetInt64(set.Dual)
-		sum.Sub(sum, x.Mul(x, big.NewInt(int64(len(set.Vertices)-1)/2)))
+		sum.Sub(sum, x.Mul(x, big.NewInt(int64(set.To-set.From-1)/2)))
 	}
 	return sum
 }

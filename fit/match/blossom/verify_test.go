@@ -11,10 +11,7 @@ import (
 func (r *Result) clone() *Result {
 	c := *r
 	c.Mate, c.Dual = slices.Clone(r.Mate), slices.Clone(r.Dual)
-	c.Blossoms = make([]Blossom, len(r.Blossoms))
-	for i, b := range r.Blossoms {
-		c.Blossoms[i] = Blossom{slices.Clone(b.Vertices), b.Dual}
-	}
+	c.Blossoms, c.Line = slices.Clone(r.Blossoms), slices.Clone(r.Line)
 	return &c
 }
 
@@ -87,17 +84,22 @@ func TestVerifyRefuses(t *testing.T) {
 		refuse("blossom dual up", func(r *Result) { r.Blossoms[b].Dual += 2 })
 		refuse("blossom dual down", func(r *Result) { r.Blossoms[b].Dual -= 2 })
 		refuse("blossom dual below 0", func(r *Result) { r.Blossoms[b].Dual = -2 })
-		refuse("blossom even", func(r *Result) { r.Blossoms[b].Vertices = r.Blossoms[b].Vertices[1:] })
-		refuse("blossom smaller", func(r *Result) { r.Blossoms[b].Vertices = r.Blossoms[b].Vertices[:1] })
+		refuse("blossom even", func(r *Result) { r.Blossoms[b].To-- })
+		refuse("blossom smaller", func(r *Result) { r.Blossoms[b].To = r.Blossoms[b].From + 1 })
+		refuse("blossom moved", func(r *Result) { r.Blossoms[b].From++; r.Blossoms[b].To++ })
+		refuse("blossom turned round", func(r *Result) { r.Blossoms[b].From, r.Blossoms[b].To = r.Blossoms[b].To, r.Blossoms[b].From })
+		refuse("blossom twice", func(r *Result) { r.Blossoms = append(r.Blossoms, r.Blossoms[b]) })
 		refuse("blossom gone", func(r *Result) { r.Blossoms = slices.Delete(r.Blossoms, b, b+1) })
-		refuse("vertex twice", func(r *Result) { r.Blossoms[b].Vertices[0] = r.Blossoms[b].Vertices[1] })
-		refuse("blossom out of range", func(r *Result) { r.Blossoms[b].Vertices[0] = -1 })
+		refuse("blossom out of range", func(r *Result) { r.Blossoms[b].From = -1; r.Blossoms[b].To-- })
 		refuse("blossom dual beyond", func(r *Result) { r.Blossoms[b].Dual = 1 << 62 })
 	}
 	refuse("total", func(r *Result) { r.Total-- })
 	refuse("worst pair", func(r *Result) { r.Worst++ })
 	refuse("left out", func(r *Result) { r.LeftOut = 2 })
 	refuse("duals short", func(r *Result) { r.Dual = r.Dual[1:] })
+	refuse("line short", func(r *Result) { r.Line = r.Line[1:] })
+	refuse("vertex twice in line", func(r *Result) { r.Line[0] = r.Line[1] })
+	refuse("vertex out of line", func(r *Result) { r.Line[0] = n })
 	refuse("mates short", func(r *Result) { r.Mate = r.Mate[1:] })
 	refuse("dual beyond", func(r *Result) { r.Dual[0] = -1 << 62 })
 
@@ -177,7 +179,7 @@ func TestVerifyBottleneckRefuses(t *testing.T) {
 		}
 	}
 	r := good.clone()
-	r.Witness = &Result{Dual: make([]int64, n), Penalty: 2}
+	r.Witness = &Result{Dual: make([]int64, n), Line: good.Line, Penalty: 2}
 	if err := VerifyBottleneck(n, c.Pairs(), 0, r); !errors.Is(err, ErrProof) {
 		t.Errorf("empty witness: %v", err)
 	}
