@@ -20,6 +20,7 @@ const (
 	InReading                    // what the curve may be between the points
 	InPairing                    // of gate and current that were not read at one instant
 	InSweeps                     // what several sweeps differ by, or share beside their own scatter
+	InRepeat                     // what a device reads differently by when it is put in again
 	InGateOffset                 // counts of the gate meter's statement
 	InCurrentOffset              // counts of the statement of the meter of the current
 	InResistorDrift              // R_L from one session to the next
@@ -49,7 +50,7 @@ const (
 // temperature; the gains of the same meters stay as they are. Absolute: everything.
 func (in Input) In(s Sum) bool {
 	switch {
-	case in <= InSweeps:
+	case in <= InRepeat:
 		return true
 	case in <= InTemperature:
 		return s >= Between
@@ -205,6 +206,7 @@ var inputInfos = [inputCount]struct{ name, unit, kind, shape string }{
 	InReading:       {"curve between the points", "V", "B", normal},
 	InPairing:       {"pairing of the meters", "V", "B", normal},
 	InSweeps:        {"difference of the sweeps", "", "A", normal},
+	InRepeat:        {"device put in again", "", "A", normal},
 	InGateOffset:    {"gate meter offset", "V", "B", rectangular},
 	InCurrentOffset: {"offset", "A", "B", rectangular},
 	InResistorDrift: {"R_L drift", "%", "B", rectangular},

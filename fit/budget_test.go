@@ -143,7 +143,11 @@ func TestBudgetAddsUp(t *testing.T) {
 				other.Vg[k] += 1e-3 * float64(k%3-1)
 			}
 			rs = append(rs, One(other, s))
-			for _, r := range append(slices.Clone(rs), Combine(rs, []string{"up", "down"})) {
+			again := Combine(rs, []string{"up", "down"}) // the same with the device put in anew
+			for _, k := range []Key{KeyVgsth, KeyVgsIdle} {
+				Repeated(&again, k, []Quantity{*rs[0].At(k), *rs[1].At(k)}, 10e-3, 10e-3, 20)
+			}
+			for _, r := range append(slices.Clone(rs), Combine(rs, []string{"up", "down"}), again) {
 				for _, k := range Keys {
 					check(name, k, *r.At(k))
 				}

@@ -53,9 +53,23 @@ const (
 	CodeOffNotRead         = "off-not-read"    // no reading at the off voltage
 	CodeOverdue            = "calibration-due" // calibration overdue
 	CodeUnlikeConditions   = "unlike-conditions"
-	CodeLotShape           = "lot-shape"        // read along the lot's median curve
-	CodeMethodNotValid     = "method-not-valid" // no value by the method asked for
-	CodeOutsideLimits      = "outside-limits"   // outside the data sheet's limits
+	CodePartNotNamed       = "part-not-named"       // lots compared of which one has no part of a name
+	CodeLotShape           = "lot-shape"            // read along the lot's median curve
+	CodeMethodNotValid     = "method-not-valid"     // no value by the method asked for
+	CodeOutsideLimits      = "outside-limits"       // outside the data sheet's limits
+	CodeCommonUnknown      = "common-error-unknown" // what the bench adds to the difference of two lots
+
+	// Of the bench, by devices put in again.
+	CodeTooFewRepeats   = "too-few-repeats"
+	CodeOrderNotRandom  = "order-not-random"
+	CodeUnevenRepeats   = "uneven-repeats" // one device makes most of the scatter
+	CodeOperatorsDiffer = "operators-differ"
+	CodeBenchCoarse     = "bench-coarse" // repeats to more than a tenth of the lot's spread
+	CodeBenchDrift      = "bench-drift"
+	CodeControlOutside  = "control-outside"
+	CodeControlTrend    = "control-trend"
+	CodeDeviceChanged   = "device-changed" // since it was measured first
+	CodeAllShifted      = "all-shifted"    // all devices together since then
 
 	// States of a device that stand as a warning in what programs read.
 	CodeExcluded    = "excluded"
@@ -205,6 +219,9 @@ var Codes = []CodeInfo{
 	{CodeUnlikeConditions,
 		"The values were taken under unlike conditions.",
 		"Compare only values of the same circuit, current, temperature and definition."},
+	{CodePartNotNamed,
+		"No part is named for a lot that is compared, so that it is not known whether both are of one part.",
+		"Name it with gatesill lot edit LOT --part NAME."},
 	{CodeLotShape,
 		"The device has too few points of its own there, and was read along the median shape of the lot's curves.",
 		"Take more points around the current asked for; do not trust the value to show another die."},
@@ -214,6 +231,39 @@ var Codes = []CodeInfo{
 	{CodeOutsideLimits,
 		"The threshold lies outside the limits of the data sheet.",
 		"Check that test current and circuit are those of the data sheet, measure again, and apply your own rule for such devices."},
+	{CodeTooFewRepeats,
+		"Too few devices were put in again to tell how well the bench repeats.",
+		"Put ten devices in three times each, in random order: gatesill gauge LOT --rounds 3 writes one."},
+	{CodeOrderNotRandom,
+		"The devices were measured in the same order every time, so that a drift of the bench looks like a difference of parts, or like repeatability.",
+		"Measure in another order in every round: gatesill gauge LOT --rounds 3 writes one."},
+	{CodeUnevenRepeats,
+		"One device repeats much worse than the others.",
+		"Clean its leads, measure it again, and check that it was not mixed up with another."},
+	{CodeOperatorsDiffer,
+		"Operators or fixtures do not read the same on the same devices.",
+		"Find out what they do differently (time of waiting, contact, temperature), or let one of them measure all that is compared."},
+	{CodeBenchCoarse,
+		"What the bench repeats to is more than a tenth of the spread of the lot.",
+		"Measure every device several times, sort into wider bins, or improve contact and temperature."},
+	{CodeBenchDrift,
+		"Readings of the same devices change along a session.",
+		"Let the bench warm up, measure in random order, and put the first device in again at the end."},
+	{CodeControlOutside,
+		"A control part reads outside the limits that its own earlier readings set.",
+		"Measure it again; if it stays, look for what changed on the bench since, before going on with the lot."},
+	{CodeControlTrend,
+		"The readings of a control part move steadily in one direction.",
+		"Look for what ages or warms up: battery, load resistor, socket, the part itself; measure a second control part."},
+	{CodeDeviceChanged,
+		"A device reads otherwise than at its first date by more than repeatability and what is common to all devices explain.",
+		"Check its serial, measure it again; if it stays, the part has changed."},
+	{CodeAllShifted,
+		"All devices together read otherwise than at their first date.",
+		"Compare the temperatures, give the coefficient with --tempco, and measure a control part: it is the bench, not the parts."},
+	{CodeCommonUnknown,
+		"Lots were compared that were not measured in one session with the same meters, and what that adds to their difference is not known.",
+		"Give the meters' accuracy in a bench file, measure some control parts with both lots, or measure both in one session."},
 	{CodeExcluded,
 		"The device was left out of every statistic by hand.",
 		"See why with gatesill device show; gatesill device include lets it count again."},

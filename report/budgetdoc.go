@@ -41,17 +41,23 @@ type totalDoc struct {
 	Expanded number `json:"expanded"`
 }
 
+func totalDocOf(t fit.Total) totalDoc {
+	return totalDoc{number(t.U), number(t.Nu), number(t.K), number(t.Expanded)}
+}
+
 type budgetDoc struct {
 	Unit   string    `json:"unit"`
 	Lines  []lineDoc `json:"lines"`
 	Totals byName    `json:"totals"`
 }
 
-// byName is a JSON object of the three sums, in their order.
+// byName is a JSON object of the three sums, in their order, and of the difference
+// between two devices on the same meters.
 type byName struct {
 	U         totalDoc `json:"u"`
 	UBetween  totalDoc `json:"u_between"`
 	UAbsolute totalDoc `json:"u_absolute"`
+	OfTwo     totalDoc `json:"u_difference"`
 }
 
 // byBudget gives the budgets of a device, without those it has no value of.
@@ -72,11 +78,10 @@ func byBudget(r *fit.Result) *byKey[budgetDoc] {
 			doc.Lines = append(doc.Lines, lineDoc{c.Name, number(c.U), own, number(c.C), unit + "/" + own, number(c.Share()),
 				c.Type, c.Shape, number(c.Nu), enters(c, func(i int) string { return sums[i].key }), optional(c.Basis)})
 		}
-		total := func(s fit.Sum) totalDoc {
-			t := q.Budget.Total(s)
-			return totalDoc{number(t.U), number(t.Nu), number(t.K), number(t.Expanded)}
+		doc.Totals = byName{
+			totalDocOf(q.Budget.Total(fit.Within)), totalDocOf(q.Budget.Total(fit.Between)), totalDocOf(q.Budget.Total(fit.Absolute)),
+			totalDocOf(q.Budget.Difference()),
 		}
-		doc.Totals = byName{total(fit.Within), total(fit.Between), total(fit.Absolute)}
 		m[k] = doc
 	}
 	return &m

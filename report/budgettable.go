@@ -26,12 +26,13 @@ func budgets(p *printer, s *Sheet, d *Device, style Style) {
 		for _, x := range sums {
 			p.line("  %s", totalLine(x.name, q.Budget.Total(x.sum), KeyOf(k).Unit))
 		}
+		p.line("  %s", totalLine("difference of two", q.Budget.Difference(), KeyOf(k).Unit))
 	}
 	p.line("")
 	if !said {
 		p.line("No value, so no budget.")
 	} else {
-		wrapped(p, "", "  ", "u is a standard uncertainty; coefficient times u is the contribution, and the roots of the sums of their squares are the uncertainties within the session, between sessions on one bench, and absolute, each of which holds the one before it. "+
+		wrapped(p, "", "  ", "u is a standard uncertainty; coefficient times u is the contribution, and the roots of the sums of their squares are the uncertainties within the session, between sessions on one bench, and absolute, each of which holds the one before it; the difference of two is that between two such devices in one session on the same meters, each with its own temperature. "+
 			"A: from the scatter of readings. B: from statements and assumptions.", style.Width)
 	}
 	if lines := shapeLines(d.Result.Shape); len(lines) > 0 {

@@ -268,11 +268,12 @@ type fullDeviceDoc struct {
 	Note     optional `json:"note"`
 	State    string   `json:"state"`
 	quantities
-	Method   optional       `json:"method"`
-	Warnings []fit.Warning  `json:"warnings"`
-	Flagged  bool           `json:"flagged"`
-	Reasons  []reasonDoc    `json:"reasons"`
-	Sweeps   []fullSweepDoc `json:"sweeps"`
+	Method   optional      `json:"method"`
+	Warnings []fit.Warning `json:"warnings"`
+	Flagged  bool          `json:"flagged"`
+	Reasons  []reasonDoc   `json:"reasons"`
+	*judgementDoc
+	Sweeps []fullSweepDoc `json:"sweeps"`
 }
 
 type sortingDoc struct {
@@ -297,7 +298,7 @@ func WriteJSON(w io.Writer, s Sheet) error {
 			Marking: optional(d.Marking), Tube: optional(d.Tube), Role: string(d.Role), Excluded: d.Excluded,
 			Why: optional(d.Device.Why), Note: optional(d.Note), State: short.State, quantities: short.quantities,
 			Method: short.Method, Warnings: short.Warnings, Flagged: verdicts[i].Flagged, Reasons: verdicts[i].Reasons,
-			Sweeps: []fullSweepDoc{},
+			judgementDoc: verdicts[i].judgementDoc, Sweeps: []fullSweepDoc{},
 		}
 		for j := range d.Sweeps {
 			doc.Sweeps = append(doc.Sweeps, fullSweepDocOf(&d.Sweeps[j]))
@@ -321,7 +322,8 @@ func WriteJSON(w io.Writer, s Sheet) error {
 		member{"test_current_from", optional(s.TestBasis)}, member{"idle_current_A", number(s.IdleCurrent)},
 		member{"sources", sources}, member{"sessions", sessions}, member{"devices", devices},
 		member{"populations", max(1, s.Spread.Populations)}, member{"summary", summaryDocs(&s.Spread)},
-		member{"limits", limitDocs(&s.Spread)}, member{"spread_warnings", append([]fit.Warning{}, s.Spread.Warnings...)},
+		member{"limits", limitDocs(&s.Spread)}, member{"split", splitDocOf(s.Spread.Split)},
+		member{"specification", specDocOf(s.Spec)}, member{"spread_warnings", append([]fit.Warning{}, s.Spread.Warnings...)},
 		member{"sorting", sorting}, member{"data_sha256", optional(s.Hash)}, member{"latest", optional(s.Latest)},
 		member{"program_version", optional(s.Version)})
 }
@@ -369,7 +371,7 @@ func DeviceJSON(w io.Writer, f DeviceFile, s Sheet) error {
 		changes = append(changes, changeDocOf(c))
 	}
 	return writeObject(w, member{"schema", Schema}, member{"lot", f.Lot.Name}, member{"device", s.deviceDocOf(d)},
-		member{"role", string(d.Role)}, member{"note", optional(d.Note)}, member{"sweeps", sweeps}, member{"changes", changes})
+		member{"role", string(d.Role)}, member{"note", optional(d.Note)}, member{"sweeps", sweeps}, member{"timeline", timelineDocs(&f)}, member{"changes", changes})
 }
 
 func changeDocOf(c record.Change) changeDoc {

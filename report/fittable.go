@@ -40,6 +40,7 @@ func (p *printer) grid(g grid) (dropped []string) {
 func FitTable(w io.Writer, s Sheet, style Style) error {
 	p := &printer{w: w}
 	p.line("%s", s.SortedLine())
+	repeatabilityLine(p, s, s.SortedBy, style)
 	if len(s.Devices) == 0 {
 		p.line("The lot has no devices yet.")
 		return p.err

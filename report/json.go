@@ -239,6 +239,7 @@ type verdictDoc struct {
 	Device  string      `json:"device"`
 	Flagged bool        `json:"flagged"`
 	Reasons []reasonDoc `json:"reasons"`
+	*judgementDoc
 }
 
 func summaryDocs(sp *lot.Spread) byKey[summaryDoc] {
@@ -260,11 +261,11 @@ func limitDocs(sp *lot.Spread) byKey[limitDoc] {
 // verdictDocs lists every device of the lot, those too that the spread did not
 // look at.
 func verdictDocs(s *Sheet) []verdictDoc {
-	verdicts := s.Verdicts()
+	verdicts, judgements := s.Verdicts(), judgementDocs(s.Spec)
 	docs := make([]verdictDoc, 0, len(s.Devices))
 	for _, d := range s.Devices {
 		v := verdicts[d.Name]
-		doc := verdictDoc{d.Name, v.Flagged, []reasonDoc{}}
+		doc := verdictDoc{d.Name, v.Flagged, []reasonDoc{}, judgements[d.Name]}
 		for _, r := range v.Reasons {
 			doc.Reasons = append(doc.Reasons, reasonDoc(r))
 		}
@@ -283,10 +284,10 @@ func rowsOf[T any](list []T) rows {
 
 // SpreadJSON writes what `spread --json` gives.
 func SpreadJSON(w io.Writer, s Sheet) error {
-	return writeObject(w,
-		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"populations", max(1, s.Spread.Populations)},
-		member{"summary", summaryDocs(&s.Spread)}, member{"limits", limitDocs(&s.Spread)},
-		member{"devices", rowsOf(verdictDocs(&s))})
+	return writeObject(w, append([]member{
+		{"schema", Schema}, {"lot", s.Lot.Name}, {"populations", max(1, s.Spread.Populations)},
+		{"split", splitDocOf(s.Spread.Split)}, {"summary", summaryDocs(&s.Spread)}, {"limits", limitDocs(&s.Spread)},
+		{"specification", specDocOf(s.Spec)}, {"devices", rowsOf(verdictDocs(&s))}}, heldMembers(&s, s.SortedBy)...)...)
 }
 
 type placedDoc struct {
@@ -358,10 +359,10 @@ func SortJSON(w io.Writer, s Sheet) error {
 	if s.Sorting == nil {
 		return fmt.Errorf("lot %q: %w", s.Lot.Name, ErrNotSorted)
 	}
-	return writeObject(w,
-		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"by", string(s.Sorting.By)},
-		member{"smallest_honest_width_" + sortUnit(s.Sorting.By), number(s.Sorting.SmallestWidth)},
-		member{"bins", rowsOf(binDocs(s.Sorting))}, member{"unsorted", rowsOf(unsortedDocs(&s))})
+	return writeObject(w, append([]member{
+		{"schema", Schema}, {"lot", s.Lot.Name}, {"by", string(s.Sorting.By)},
+		{"smallest_honest_width_" + sortUnit(s.Sorting.By), number(s.Sorting.SmallestWidth)},
+		{"bins", rowsOf(binDocs(s.Sorting))}, {"unsorted", rowsOf(unsortedDocs(&s))}}, heldMembers(&s, s.Sorting.By)...)...)
 }
 
 // writeLine writes one object of a stream, in one line.

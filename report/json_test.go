@@ -86,8 +86,8 @@ func TestKeysOfTheContract(t *testing.T) {
 	limit := "{k num, basis text, low num, high num}"
 	s.Spread.Devices[0].Flagged = true
 	s.Spread.Devices[0].Reasons = []lot.Reason{{Code: "drain-leakage", Text: "It leaks."}}
-	require.Equal(t, "{schema num, lot text, populations num, summary {vgsth_V "+summary+", vgs_idle_V "+summary+", vt_V "+summary+", beta_A_per_V2 "+summary+
-		", gm_idle_S "+summary+", idss_A "+summary+"}, limits {vgs_idle_V "+limit+", gm_idle_S "+limit+"}, devices [{device text, flagged bool, reasons [{code text, text text}]}]}",
+	require.Equal(t, "{schema num, lot text, populations num, split null, summary {vgsth_V "+summary+", vgs_idle_V "+summary+", vt_V "+summary+", beta_A_per_V2 "+summary+
+		", gm_idle_S "+summary+", idss_A "+summary+"}, limits {vgs_idle_V "+limit+", gm_idle_S "+limit+"}, specification null, devices [{device text, flagged bool, reasons [{code text, text text}]}]}",
 		shapeOf(t, func(w io.Writer) error { return report.SpreadJSON(w, s) }))
 
 	require.Equal(t, "{schema num, lot text, by text, smallest_honest_width_V num, bins [{bin text, low_V num, high_V num, devices [{device text, value num, u num, maybe null}]}], unsorted [{device text, why text}]}",

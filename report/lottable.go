@@ -6,6 +6,7 @@ import (
 	"strings"
 
 	"gatesill/fit"
+	"gatesill/fit/gauge"
 	"gatesill/store/record"
 )
 
@@ -156,6 +157,11 @@ type DeviceFile struct {
 	Lot     record.Lot
 	Device  Device
 	Changes []record.Change // ascending by time: of the device and of its sweeps
+
+	By       fit.Key        // quantity of the timeline
+	Timeline []gauge.Moment // sitting by sitting; shown from two on
+	Tempco   float64        // V/K, behind its corrected numbers; NaN: none given
+	History  []string       // sentences on what became of it
 }
 
 // DeviceHistory writes the history and the audit trail of one device for
@@ -190,6 +196,7 @@ func DeviceHistory(w io.Writer, f DeviceFile, s Sheet, style Style) error {
 	} else {
 		p.grid(sweepGrid(d, style))
 	}
+	deviceTimeline(p, &f, &s, style)
 	p.line("")
 	p.line("%s", style.paint("Changes", bold))
 	if len(f.Changes) == 0 {

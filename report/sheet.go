@@ -8,6 +8,7 @@ package report
 import (
 	"gatesill/fit"
 	"gatesill/fit/compare"
+	"gatesill/fit/gauge"
 	"gatesill/fit/lot"
 	"gatesill/store/record"
 )
@@ -26,15 +27,23 @@ type Sheet struct {
 	TestBasis   string  // where it came from: "part", "--at", "spot list", "default"
 	IdleCurrent float64 // A; NaN: the part has none
 
-	Shape  *fit.LotShape // of the lot's curves, which devices with too few points were read along; nil: none
-	Budget bool          // the results hold how their uncertainties come about, and that is shown
+	Shape *fit.LotShape // of the lot's curves, which devices with too few points were read along; nil: none
+	// Repeatability of the bench by quantity, which no u of a device is below; nil: not
+	// known. It is that of this lot or of another of the part on the same bench.
+	Repeatability map[fit.Key]gauge.Repeatability
 
-	Spread   lot.Spread
-	Sorting  *lot.Sorting // nil: not sorted
-	Compared *Compared    // nil: not compared with another lot
-	Version  string       // of the program
-	Hash     string       // SHA-256 over the canonical data, hex
-	Latest   string       // latest time stamp in the data: the page has no present time
+	Budget bool // the results hold how their uncertainties come about, and that is shown
+
+	Spread lot.Spread
+	Spec   *lot.Specification // nil: the part has no limits
+
+	GuardSetAt, SendBackSetAt string         // when the lot's guard band and its rule to send back were set last, stamps as of [record.Stamp]; "": never
+	Sorting                   *lot.Sorting   // nil: not sorted
+	Compared                  *Compared      // nil: not compared with another lot
+	Trend                     *compare.Trend // the lots of the part in the order of time; nil: not gathered
+	Version                   string         // of the program
+	Hash                      string         // SHA-256 over the canonical data, hex
+	Latest                    string         // latest time stamp in the data: the page has no present time
 
 	Codes []fit.CodeInfo // explains the warning codes; nil: they are shown without advice
 }
@@ -43,6 +52,14 @@ type Sheet struct {
 type Compared struct {
 	Reference *Sheet
 	compare.Comparison
+	MarginFrom string // where the margin comes from and how it became volts, in words; "" none
+}
+
+// ComparedLots is one lot or several against a reference lot.
+type ComparedLots struct {
+	Reference  *Sheet
+	Candidates []Sheet        // each with Compared, in the order asked for
+	Trend      *compare.Trend // of all lots, the reference among them; nil with one candidate
 }
 
 // Verdicts gives the verdict of the spread on each device, by name.

@@ -23,6 +23,7 @@ func SortTable(w io.Writer, s Sheet, style Style) error {
 	srt := s.Sorting
 	unit := KeyOf(srt.By).Unit
 	p.line("%s", s.SortedPhrase(srt.By))
+	repeatabilityLine(p, s, srt.By, style)
 	p.line("")
 	p.grid(binGrid(srt, style))
 	p.line("")

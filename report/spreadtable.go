@@ -22,9 +22,11 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		by = s.SortedBy
 	}
 	p.line("%s", s.SortedPhrase(by))
+	repeatabilityLine(p, s, by, style)
 	keys := spreadKeys(s.Spread)
 	if len(keys) == 0 {
 		p.line("No device of the lot has a value: there is no spread to show.")
+		specBlock(p, s, style)
 		notMeasured(p, s, style)
 		lotWarnings(p, s, s.Spread.Warnings, style)
 		return p.err
@@ -48,9 +50,13 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "  ", Clean(Sentence(sp.Text)), style.Width)
 		wrapped(p, "  lower: ", "    ", namesWords(sp.Low, 40), style.Width)
 		wrapped(p, "  upper: ", "    ", namesWords(sp.High, 40), style.Width)
+		for _, o := range sp.Origins {
+			wrapped(p, "  by "+o.Of+": ", "    ", Clean(OriginWords(o)), style.Width)
+		}
 	}
 	lotWarnings(p, s, warnings, style)
 	flags(p, s, style)
+	specBlock(p, s, style)
 	doubts(p, s, style)
 	notMeasured(p, s, style)
 	return p.err
@@ -209,4 +215,30 @@ func flags(p *printer, s Sheet, style Style) {
 			p.line("  %s", style.paint(name, red))
 		}
 	}
+}
+
+// OriginWords tells how the groups of a split lie to date codes or tubes, and whether
+// they follow them.
+func OriginWords(o lot.Origin) string {
+	const most = 6
+	var parts []string
+	for i, g := range o.Groups {
+		if i == most {
+			parts = append(parts, fmt.Sprintf("and %d more", len(o.Groups)-most))
+			break
+		}
+		name := g.Name
+		if name == "" {
+			name = NotGiven
+		}
+		parts = append(parts, fmt.Sprintf("%s has %d lower, %d upper", name, g.Low, g.High))
+	}
+	text := strings.Join(parts, "; ")
+	switch {
+	case o.Follows:
+		return text + fmt.Sprintf(": the groups follow the %s (p = %.2g for so good an agreement by chance)", o.Of, o.P)
+	case isNumber(o.P):
+		return text + fmt.Sprintf(": not shown to go with the groups (p = %.2g)", o.P)
+	}
+	return text
 }

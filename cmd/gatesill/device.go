@@ -9,6 +9,7 @@ import (
 
 func deviceCmd(env *job.Env) *cobra.Command {
 	var lot, reason string
+	var tempco record.Num
 	cmd := &cobra.Command{
 		Use: "device show|exclude|include|rename|note|role", Short: "Show and change single devices", Args: noSuch,
 		Example: `  gatesill device show D7 --lot bag1
@@ -30,8 +31,11 @@ func deviceCmd(env *job.Env) *cobra.Command {
 	change := func(cmd *cobra.Command, name string, f func(*record.Device)) error {
 		return job.DeviceChange(cmd.Context(), env, lot, name, reason, f)
 	}
-	verb("show DEVICE", "History and audit trail of a device", "gatesill device show D7 --lot bag1", 1,
-		func(cmd *cobra.Command, a []string) error { return job.DeviceShow(cmd.Context(), env, lot, a[0]) })
+	verb("show DEVICE", "History and audit trail of a device", "gatesill device show D7 --lot bag1 --tempco -4mV/K", 1,
+		func(cmd *cobra.Command, a []string) error {
+			return job.DeviceShow(cmd.Context(), env, lot, a[0], tempco)
+		})
+	num(cmd.Commands()[0].Flags(), &tempco, "tempco", "V/K", "temperature coefficient of the gate voltage, for what it read in other sessions: -4mV/K")
 	verb("exclude DEVICE", "Leave a device out of every statistic (needs --reason)", "gatesill device exclude D7 --lot bag1 --reason 'leg broken off'", 1,
 		func(cmd *cobra.Command, a []string) error {
 			if reason == "" {

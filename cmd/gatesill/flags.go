@@ -1,6 +1,10 @@
 package main
 
 import (
+	"cmp"
+	"errors"
+	"fmt"
+	"strconv"
 	"strings"
 
 	"github.com/spf13/pflag"
@@ -20,7 +24,7 @@ func (f numFlag) String() string {
 	}
 	return f.dst.String()
 }
-func (f numFlag) Type() string { return f.unit }
+func (f numFlag) Type() string { return cmp.Or(f.unit, "NUMBER") }
 func (f numFlag) Set(text string) error {
 	x, err := record.ParseNumber(text, f.unit)
 	if err == nil {
@@ -54,9 +58,31 @@ func (f shareFlag) Set(text string) error {
 		x /= 100
 	}
 	if x < 0 || x >= 1 {
-		return record.ErrInvalid
+		if !percent && x >= 1 && x < 100 {
+			return fmt.Errorf("must lie between 0 and 100 %%; %s percent are written %s%%", head, head)
+		}
+		return errors.New("must lie between 0 and 100 %")
 	}
 	*f.dst = record.Known(x)
+	return nil
+}
+
+// countFlag takes a whole number of parts.
+type countFlag struct{ dst *record.Num }
+
+func (f countFlag) String() string {
+	if f.dst == nil {
+		return ""
+	}
+	return f.dst.String()
+}
+func (f countFlag) Type() string { return "NUMBER" }
+func (f countFlag) Set(text string) error {
+	n, err := strconv.Atoi(strings.TrimSpace(text))
+	if err != nil || n < 0 {
+		return errors.New("must be a whole number, 0 or more")
+	}
+	*f.dst = record.Known(float64(n))
 	return nil
 }
 

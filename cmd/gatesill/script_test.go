@@ -135,8 +135,11 @@ func at(v any, path string) (any, error) {
 			if err != nil { // by the name of the device, bin, ... in it
 				i = -1
 				for j, e := range x {
-					if m, ok := e.(map[string]any); ok && (m["device"] == key || m["bin"] == key) {
-						i = j
+					m, _ := e.(map[string]any)
+					for _, name := range []string{"device", "bin", "candidate", "lot", "test", "option"} {
+						if m[name] == key {
+							i = j
+						}
 					}
 				}
 			}

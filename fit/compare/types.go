@@ -106,7 +106,7 @@ type Secondary struct {
 // Common is the error that whole lots share through session and meters, as it
 // enters the shift.
 type Common struct {
-	U        float64 // V, standard uncertainty; NaN: not known, then not in the interval
+	U        float64 // V, standard uncertainty, of what is known of it; NaN: nothing is, then it is not in the interval
 	Basis    string  // in words: "same session", "sessions of one bench", "different meters", "control parts"
 	Controls int     // control parts that tie the lots together
 	Offset   float64 // V, taken off the shift because of them; 0: none
@@ -154,7 +154,8 @@ type Paired struct {
 	Why     string   // one sentence
 	OnlyRef []string // serials without a partner
 	OnlyNew []string
-	SD      float64 // V, of the differences
+	SD      float64  // V, of the differences
+	Own     Interval // V, the shift as the pairs alone say: nothing taken off, without the common error
 }
 
 // Comparison is the whole answer for two lots. Shift is candidate - reference.
@@ -175,7 +176,8 @@ type Comparison struct {
 	NotExcluded          float64 // V, largest shift that the interval does not exclude
 	More                 int     // devices a lot that would tell; 0: no number given
 	MoreText             string  // what that number assumes, or why there is none
-	Raw                  float64 // V, shift before control parts and temperature were taken off; NaN: nothing was
+	Raw                  float64 // V, shift before control parts or temperature were taken off; NaN: nothing was
+	ForTemp              float64 // V, taken off the shift because the lots were not equally warm; 0: nothing was
 	Spread               Interval
 	SpreadTest           string
 	Secondary            []Secondary

@@ -131,7 +131,7 @@ func whyUnsorted(d *Device, by fit.Key) string {
 	if r.State == fit.Above || r.Has(fit.CodeAboveRange) {
 		return orElse(r.Why, orElse(warned(r, fit.CodeAboveRange), stateReasons[fit.Above].Text))
 	}
-	return fmt.Sprintf("no %s could be had", nameOf(by))
+	return fmt.Sprintf("no %s could be had", NameOf(by))
 }
 
 func orElse(text, other string) string {
@@ -348,7 +348,7 @@ func sortWarnings(s *Sorting, placed []placing, g grid) []fit.Warning {
 	for i, p := range placed {
 		values[i] = p.Value
 	}
-	step := stepOf(values)
+	step := StepOf(values)
 	switch {
 	case math.IsNaN(s.SmallestWidth):
 		out = append(out, fit.Warning{Code: fit.CodeNoAccuracy, Text: "no uncertainty is known: which devices may belong in the next bin cannot be said"})

@@ -144,19 +144,32 @@ func counts(d *Device) bool {
 // valueOf is a quantity of a device with its uncertainty; NaN: none. KeySpan is
 // made from two spots. A largest transconductance at the end of a sweep says how
 // far the sweep went, not what the device is: it is compared with no other.
-func valueOf(d *Device, k fit.Key) (x, u float64) {
+func valueOf(r *fit.Result, k fit.Key) (x, u float64) {
 	if k == KeySpan {
-		a, b := d.Result.Vgsth, d.Result.VgsIdle
+		a, b := r.Vgsth, r.VgsIdle
 		return b.Value - a.Value, math.Hypot(a.U, b.U)
 	}
-	q := d.Result.At(k)
-	if k == fit.KeyGmMax && d.Result.GmRising {
+	q := r.At(k)
+	if k == fit.KeyGmMax && r.GmRising {
 		q = nil
 	}
 	if q == nil || math.IsInf(q.Value, 0) {
 		return math.NaN(), math.NaN()
 	}
 	return q.Value, q.U
+}
+
+// Read is a quantity of a device as lots are judged by it, with its standard
+// uncertainty within the session: x is NaN where the device has none; above where
+// it is known to exceed every value because it never reaches the current of a gate
+// voltage. Whether the device takes part at all is not asked.
+func Read(r *fit.Result, k fit.Key) (x, u float64, above bool) {
+	x, u = valueOf(r, k)
+	if math.IsInf(x, 0) {
+		x = math.NaN()
+	}
+	above = math.IsNaN(x) && isThreshold(k) && (r.State == fit.Above || r.Has(fit.CodeAboveRange))
+	return x, u, above
 }
 
 // columnOf reads one quantity off the devices that count. step is that of the
@@ -172,8 +185,8 @@ func columnOf(devs []Device, k fit.Key, pchannel bool, step float64) *column {
 		if !counts(&devs[i]) {
 			continue
 		}
-		v, u := valueOf(&devs[i], k)
-		if math.IsNaN(v) || math.IsInf(v, 0) || c.log && v == 0 {
+		v, u, _ := Read(&devs[i].Result, k)
+		if math.IsNaN(v) || c.log && v == 0 {
 			continue // no gain is 0
 		}
 		c.v[i], c.x[i] = v, c.sign*v
@@ -191,7 +204,7 @@ func columnOf(devs []Device, k fit.Key, pchannel bool, step float64) *column {
 	if !(step > 0) || math.IsInf(step, 0) {
 		c.step = 0
 		if k != KeySpan { // the step of a difference is that of its parts
-			c.step = stepOf(c.plain)
+			c.step = StepOf(c.plain)
 		}
 	}
 	if c.log && c.step > 0 && len(c.plain) > 0 {
@@ -208,9 +221,8 @@ func columnOf(devs []Device, k fit.Key, pchannel bool, step float64) *column {
 func (c *column) markAbove(devs []Device) {
 	c.above = make([]bool, len(devs))
 	for i := range devs {
-		r := &devs[i].Result
-		c.above[i] = counts(&devs[i]) && math.IsNaN(c.x[i]) &&
-			(r.State == fit.Above || r.Has(fit.CodeAboveRange))
+		_, _, above := Read(&devs[i].Result, c.key)
+		c.above[i] = counts(&devs[i]) && above
 	}
 }
 

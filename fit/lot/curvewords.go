@@ -159,7 +159,7 @@ func (l *judge) sizeWarnings() []fit.Warning {
 		if n >= fewest {
 			continue
 		}
-		text := fmt.Sprintf("too few to judge one another by %s: %d devices have a value, %d are needed", nameOf(c.key), n, fewest)
+		text := fmt.Sprintf("too few to judge one another by %s: %d devices have a value, %d are needed", NameOf(c.key), n, fewest)
 		if b, ok := limited[c.key]; ok && b.basis == BasisHistory {
 			text += fmt.Sprintf("; the spread of %d earlier devices of this part is used", l.opt.Known.devices(c.key))
 		} else {

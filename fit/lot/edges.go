@@ -30,7 +30,7 @@ func rangeEdges(devs []Device, by fit.Key) []fit.Warning {
 	meter := ""
 	for i := range devs {
 		d := &devs[i]
-		if x, _ := valueOf(d, by); !counts(d) || math.IsNaN(x) {
+		if x, _ := valueOf(&d.Result, by); !counts(d) || math.IsNaN(x) {
 			continue
 		}
 		on := d.Result.ReadTest

@@ -188,7 +188,7 @@ func (l *judge) familyReasons(i int) []Reason {
 		if l.odd[i] {
 			c := l.groups.col
 			out = append(out, Reason{fit.CodeTwoPopulations, fmt.Sprintf("%s of %s puts it with the smaller of two groups: %s",
-				nameOf(c.key), show(c.key, c.v[i]), l.oddWords)})
+				NameOf(c.key), show(c.key, c.v[i]), l.oddWords)})
 		}
 	}
 	threshold, gain := l.farthest(i, isThreshold), l.farthest(i, isGain)

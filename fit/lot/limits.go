@@ -21,6 +21,7 @@ import (
 const (
 	totalLevel = 0.019 // of any false alarm in a lot
 	splitLevel = 0.004 // of these, of being called two populations
+	splitOther = 0.008 // of lots spread evenly or with tails like t5, of being called two populations
 	esdLevel   = 0.008 // of these, nominal level of the ESD test
 	knownLevel = 0.015 // where the spread is known from earlier lots
 )
@@ -58,7 +59,8 @@ func curveLimit(n, quantities int) float64 {
 	return lookup(curveTable, n, math.Log2(float64(max(quantities, 2)))-1)
 }
 
-// splitCritical is the score that the parting of a lot of n must exceed.
+// splitCritical is the score that the parting of a lot of n must exceed where that
+// many quantities are looked at.
 func splitCritical(n, quantities int) float64 {
 	return lookup(splitTable, n, float64(quantities-1))
 }

@@ -31,7 +31,7 @@ func long(t *testing.T) string {
 }
 
 // sizes of the tables: every one while odd and even ones differ, then sparser.
-var sizes = []int{4, 5, 6, 7, 8, 9, 10, 11, 12, 13, 14, 15, 16, 17, 18, 19, 20, 21, 22, 23, 24, 27, 28, 32, 33, 38, 39,
+var sizes = []int{8, 9, 10, 11, 12, 13, 14, 15, 16, 17, 18, 19, 20, 21, 22, 23, 24, 27, 28, 32, 33, 38, 39,
 	45, 46, 53, 54, 60, 80, 100, 150, 200, 300, 500, 1000, 2000, 5000, 20000}
 
 func runsFor(n int) int {
@@ -93,25 +93,21 @@ func t5(rng *rand.Rand) float64 {
 }
 
 // leastScore keeps the parting from being asked for next to no evidence in large
-// lots, where the conditions of shape alone hold the level for normal lots.
+// lots, where the conditions of shape alone hold the level.
 const leastScore = 4
 
-// tableRows works out one row of each table.
-func tableRows(n, runs int) (split, limit, curve sizeRow) {
+// tableRows works out one row of each table of limits. The parting takes its share
+// here with a bar at the level of normal lots; the bar of splittable.go is never
+// lower, so that these limits err on the side of fewer flags.
+func tableRows(n, runs int) (limit, curve sizeRow) {
 	c := simulateClean(n, runs, normal)
-	split.n, limit.n, curve.n = n, n, n
+	limit.n, curve.n = n, n
 	scores := slices.Clone(c.score)
 	slices.Sort(scores)
 	for i, q := range fewQuantities {
-		split.values[i] = math.Max(leastScore, scores[int(float64(runs)*(1-splitLevel/float64(q)))])
-		if n >= fewest {
-			limit.values[i] = c.limit(q, split.values[i])
-		}
+		limit.values[i] = c.limit(q, math.Max(leastScore, scores[int(float64(runs)*(1-splitLevel/float64(q)))]))
 	}
 	for i, q := range curveQuantities {
-		if n < fewest {
-			break
-		}
 		curve.values[i] = c.limit(q, math.Inf(1))
 		if math.IsNaN(curve.values[i]) {
 			// Too few lots to tell: on as the normal distribution goes.
@@ -119,7 +115,7 @@ func tableRows(n, runs int) (split, limit, curve sizeRow) {
 			curve.values[i] = curve.values[i-1] * reach(q) / reach(curveQuantities[i-1])
 		}
 	}
-	return split, limit, curve
+	return limit, curve
 }
 
 // limit is the limit that uses up what parting and ESD test leave of the level of
@@ -141,14 +137,14 @@ func (c *cleanLots) limit(q int, critical float64) float64 {
 	return rest[len(rest)-int(left)]
 }
 
-func allTables() (split, limit, curve []sizeRow) {
-	split, limit, curve = make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes))
+func allTables() (limit, curve []sizeRow) {
+	limit, curve = make([]sizeRow, len(sizes)), make([]sizeRow, len(sizes))
 	var wg sync.WaitGroup
 	next := make(chan int)
 	for range 2 {
 		wg.Go(func() {
 			for i := range next {
-				split[i], limit[i], curve[i] = tableRows(sizes[i], runsFor(sizes[i]))
+				limit[i], curve[i] = tableRows(sizes[i], runsFor(sizes[i]))
 			}
 		})
 	}
@@ -157,8 +153,7 @@ func allTables() (split, limit, curve []sizeRow) {
 	}
 	close(next)
 	wg.Wait()
-	first := slices.Index(sizes, fewest)
-	return split, limit[first:], curve[first:]
+	return limit, curve
 }
 
 func goRows(name, doc string, rows []sizeRow) string {
@@ -179,9 +174,8 @@ func goRows(name, doc string, rows []sizeRow) string {
 }
 
 // tablesFile is tables.go with these rows.
-func tablesFile(split, limit, curve []sizeRow) string {
+func tablesFile(limit, curve []sizeRow) string {
 	return "// Made by TestLongTables with GATESILL_LONG=write; do not edit.\n\npackage lot\n" +
-		goRows("splitTable", "// splitTable holds critical scores of the parting: number of devices, and for 1 to 6\n// quantities the score that normal lots exceed in 0.4 % of lots.", split) +
 		goRows("limitTable", "// limitTable holds default limits in robust spreads: number of devices, and for 1 to\n// 6 quantities the limit with which 1.9 % of normal lots get any false alarm.", limit) +
 		goRows("curveTable", "// curveTable holds the same for 2, 4, 8, 16, 32 and 64 quantities by which lots are\n// not parted.", curve)
 }
@@ -211,16 +205,16 @@ func TestTablesAreMade(t *testing.T) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	if string(have) != tablesFile(splitTable, limitTable, curveTable) {
+	if string(have) != tablesFile(limitTable, curveTable) {
 		t.Error("tables.go is not laid out as TestLongTables does")
 	}
-	split, limit, curve := tableRows(10, 40_000) // 1,000,000 lots in the file
+	limit, curve := tableRows(10, 40_000) // 1,000,000 lots in the file
 	for _, c := range []struct {
 		name  string
 		row   sizeRow
 		table []sizeRow
 		tol   float64
-	}{{"score", split, splitTable, 0.05}, {"limit", limit, limitTable, 0.05}, {"limit of curves", curve, curveTable, 0.10}} {
+	}{{"score", splitRow(10, 40_000), splitTable, 0.05}, {"limit", limit, limitTable, 0.05}, {"limit of curves", curve, curveTable, 0.10}} {
 		for column := range 4 { // beyond, a handful of lots decide
 			got, want := c.row.values[column], lookup(c.table, 10, float64(column))
 			if math.Abs(got/want-1) > c.tol {

@@ -13,14 +13,8 @@ type parting struct {
 	above float64 // least value of the upper group
 }
 
-// smallestGroup is how many devices make a population: a single odd one does
-// not, and two only in a handful.
-func smallestGroup(n int) int {
-	if n < fewest {
-		return 2
-	}
-	return 3
-}
+// smallestGroup is how many devices make a population; fewer are odd ones.
+const smallestGroup = 3
 
 // partingOf looks for two groups in sorted values, read with that step and
 // uncertainty u.
@@ -33,26 +27,27 @@ func smallestGroup(n int) int {
 // at its greatest over all divisions. Far single values at the ends are set aside
 // first; else one wild reading would hide any division. The score alone takes
 // every skewed lot for two, so the groups must also look like two: means three
-// spreads apart, and between them a valley that holds at most a third (in lots of
-// 100 and more, where counts are surer, half) as many values as as wide a piece
-// in the middle of the smaller group.
+// spreads apart, and between them a valley that holds at most a third ([valleyShare];
+// in lots of 100 and more half) as many values as as wide a piece in the middle of
+// the smaller group. Fewer than 8 values are never parted.
 //
 // Source: classification likelihood, Scott and Symons, "Clustering methods based
 // on likelihood ratio criteria", Biometrics 27 (1971) 387-397 (from memory); the
-// conditions of shape are our own judgement. Critical values: tables.go. Checked:
-// TestFalseAlarms, TestPartingPower.
+// conditions of shape are our own judgement. The score has no distribution in closed
+// form (the division is sought among all); its bar was found by simulation of normal
+// lots, of lots spread evenly and of lots with heavy tails, and is the highest of the
+// three: splittable.go. Checked: TestPartingBar, TestFalseAlarms, TestPartingPower.
 func partingOf(sorted []float64, step, u float64) parting {
 	none := parting{score: math.Inf(-1)}
 	s := withoutFarEnds(sorted)
-	small := smallestGroup(len(sorted))
-	if len(s) < 2*small {
+	if len(sorted) < fewest || len(s) < 2*smallestGroup {
 		return none
 	}
-	score, apart := bestDivision(s, small, step, u)
+	score, apart := bestDivision(s, smallestGroup, step, u)
 	if apart.at == 0 || apart.distance < 3*apart.spread {
 		return none // at 0: numbers too great to be squared
 	}
-	p, ok := valley(s, apart.at, small)
+	p, ok := valley(s, apart.at, smallestGroup)
 	if !ok {
 		return none
 	}
@@ -143,10 +138,14 @@ func valley(s []float64, at, small int) (p parting, ok bool) {
 	w := between / 3
 	here := within(s, (p.below+p.above)/2, w)
 	there := within(s, smaller, w)
-	if len(s) < 100 {
-		return p, 3*here <= there
-	}
-	return p, 2*here <= there
+	return p, float64(here) <= valleyShare(len(s))*float64(there)
+}
+
+// valleyShare is how full the valley between two groups may be: a third of the
+// middle of the smaller one; with more values, where counts are surer, up to half.
+func valleyShare(n int) float64 {
+	const third = 1.0 / 3 * (1 + 1e-9)
+	return third + min(max(float64(n-40)/60, 0), 1)*(0.5-third)
 }
 
 func middle(s []float64) float64 { return s[(len(s)-1)/2]/2 + s[len(s)/2]/2 }
@@ -162,7 +161,8 @@ func within(s []float64, x, w float64) int {
 type twoGroups struct {
 	col    *column
 	parts  parting
-	lower  []bool // by device
+	bar    float64 // that the score passed
+	lower  []bool  // by device
 	upper  []bool
 	nl, nu int
 	also   *column // another quantity that parts it in the same way; nil: none
@@ -188,15 +188,17 @@ func findGroups(cols []*column) *twoGroups {
 	var lead float64
 	var all []*twoGroups
 	for i, c := range cols {
-		if len(c.sorted) < 4 {
+		if len(c.sorted) < fewest {
 			continue
 		}
 		p := partingOf(c.sorted, c.step, c.usual)
-		over := p.score - splitCritical(len(c.sorted), len(cols))
+		bar := splitCritical(len(c.sorted), len(cols))
+		over := p.score - bar
 		if !(over > 0) {
 			continue
 		}
 		g := newGroups(c, p)
+		g.bar = bar
 		all = append(all, g)
 		if best == nil || best.col != cols[0] && over > lead {
 			best, lead = g, over
@@ -250,7 +252,7 @@ func sameDivision(a, b *twoGroups) bool {
 // split is the division in the unit of its quantity.
 func (g *twoGroups) split(devs []Device) *Split {
 	c := g.col
-	s := &Split{By: c.key, GapLow: c.raw(g.parts.below), GapHigh: c.raw(g.parts.above)}
+	s := &Split{By: c.key, GapLow: c.raw(g.parts.below), GapHigh: c.raw(g.parts.above), Score: g.parts.score, Bar: g.bar}
 	low, high := g.lower, g.upper
 	if s.GapLow > s.GapHigh {
 		s.GapLow, s.GapHigh = s.GapHigh, s.GapLow
@@ -269,5 +271,6 @@ func (g *twoGroups) split(devs []Device) *Split {
 		s.SecondAlso = g.also.key
 	}
 	s.Text = g.sentence()
+	s.Origins = originsOf(devs, low, high)
 	return s
 }

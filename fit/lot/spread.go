@@ -244,12 +244,12 @@ func (l *judge) readingWarnings(sum map[fit.Key]Summary) []fit.Warning {
 		}
 		if math.IsNaN(s.Median) {
 			out = append(out, fit.Warning{Code: fit.CodeAboveRange, Text: fmt.Sprintf(
-				"%s: %d of %d devices never reach the current, so the lot has no median", nameOf(c.key), s.Above, s.N+s.Above)})
+				"%s: %d of %d devices never reach the current, so the lot has no median", NameOf(c.key), s.Above, s.N+s.Above)})
 			continue
 		}
 		if c.step > 0 && s.N > 1 && center(c).sd <= floorOf(c.step, 0) {
 			out = append(out, fit.Warning{Code: fit.CodeBenchLimited, Text: fmt.Sprintf(
-				"%s: the readings step by %s, too coarse for the spread of this lot", nameOf(c.key), stepWords(c, s))})
+				"%s: the readings step by %s, too coarse for the spread of this lot", NameOf(c.key), stepWords(c, s))})
 		}
 	}
 	return out

@@ -282,7 +282,7 @@ func TestStepOf(t *testing.T) {
 		{0, []float64{3.0123456789, 2.9876543211, 3.0333333333}},
 		{1e-6, []float64{1.2e-5, 3e-6, 0}},
 	} {
-		near(t, fmt.Sprint("step of ", c.values), stepOf(stats.Sorted(c.values)), c.want, 1e-15)
+		near(t, fmt.Sprint("step of ", c.values), StepOf(stats.Sorted(c.values)), c.want, 1e-15)
 	}
 }
 

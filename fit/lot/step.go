@@ -5,7 +5,7 @@ import (
 	"slices"
 )
 
-// stepOf finds the step in which sorted values were read: the coarsest of 1, 2 and 5
+// StepOf finds the step in which sorted values were read: the coarsest of 1, 2 and 5
 // times a power of ten of which all are whole multiples, 0 where there is none
 // down to a millionth of the greatest value (values that were computed, or all
 // the same).
@@ -15,7 +15,7 @@ import (
 // different values being such multiples is about one in a thousand: 5 different
 // values for a step of 5, 10 for a step of 2. For a power of ten two are taken,
 // because too coarse a step only makes flags rarer.
-func stepOf(sorted []float64) float64 {
+func StepOf(sorted []float64) float64 {
 	distinct := slices.Compact(slices.Clone(sorted))
 	if len(distinct) < 2 {
 		return 0

@@ -2,53 +2,6 @@
 
 package lot
 
-// splitTable holds critical scores of the parting: number of devices, and for 1 to 6
-// quantities the score that normal lots exceed in 0.4 % of lots.
-var splitTable = []sizeRow{
-	{4, [mostQuantities]float64{18.20, 21.00, 22.69, 23.78, 24.61, 25.35}},
-	{5, [mostQuantities]float64{20.08, 22.81, 24.37, 25.41, 26.28, 26.92}},
-	{6, [mostQuantities]float64{18.15, 20.45, 21.80, 22.65, 23.39, 23.95}},
-	{7, [mostQuantities]float64{16.77, 18.80, 19.99, 20.85, 21.54, 22.11}},
-	{8, [mostQuantities]float64{14.34, 16.21, 17.41, 18.21, 18.77, 19.23}},
-	{9, [mostQuantities]float64{14.20, 16.02, 17.15, 17.85, 18.36, 18.91}},
-	{10, [mostQuantities]float64{13.92, 15.72, 16.83, 17.52, 18.06, 18.53}},
-	{11, [mostQuantities]float64{13.66, 15.43, 16.46, 17.21, 17.77, 18.19}},
-	{12, [mostQuantities]float64{13.52, 15.21, 16.26, 17.04, 17.60, 17.98}},
-	{13, [mostQuantities]float64{13.32, 14.97, 15.90, 16.64, 17.27, 17.65}},
-	{14, [mostQuantities]float64{13.16, 14.88, 15.82, 16.55, 17.11, 17.55}},
-	{15, [mostQuantities]float64{13.05, 14.71, 15.72, 16.42, 16.93, 17.41}},
-	{16, [mostQuantities]float64{12.83, 14.49, 15.40, 16.13, 16.67, 17.10}},
-	{17, [mostQuantities]float64{12.74, 14.44, 15.40, 16.14, 16.71, 17.15}},
-	{18, [mostQuantities]float64{12.50, 14.15, 15.08, 15.75, 16.29, 16.72}},
-	{19, [mostQuantities]float64{12.22, 13.95, 14.93, 15.61, 16.11, 16.52}},
-	{20, [mostQuantities]float64{12.12, 13.89, 14.88, 15.66, 16.21, 16.65}},
-	{21, [mostQuantities]float64{11.83, 13.67, 14.75, 15.53, 16.10, 16.52}},
-	{22, [mostQuantities]float64{11.63, 13.49, 14.51, 15.18, 15.70, 16.13}},
-	{23, [mostQuantities]float64{11.39, 13.19, 14.21, 14.95, 15.45, 15.90}},
-	{24, [mostQuantities]float64{11.12, 13.00, 14.12, 14.85, 15.34, 15.82}},
-	{27, [mostQuantities]float64{10.35, 12.32, 13.41, 14.26, 14.84, 15.33}},
-	{28, [mostQuantities]float64{10.17, 12.17, 13.26, 14.07, 14.59, 15.00}},
-	{32, [mostQuantities]float64{9.08, 11.21, 12.41, 13.24, 13.90, 14.37}},
-	{33, [mostQuantities]float64{8.75, 10.88, 12.18, 12.96, 13.57, 14.06}},
-	{38, [mostQuantities]float64{7.24, 9.59, 10.99, 11.87, 12.52, 13.01}},
-	{39, [mostQuantities]float64{6.98, 9.34, 10.69, 11.49, 12.15, 12.76}},
-	{45, [mostQuantities]float64{5.01, 7.50, 8.91, 9.87, 10.58, 11.12}},
-	{46, [mostQuantities]float64{4.71, 7.27, 8.56, 9.44, 10.21, 10.81}},
-	{53, [mostQuantities]float64{4.00, 5.06, 6.57, 7.63, 8.38, 8.92}},
-	{54, [mostQuantities]float64{4.00, 5.00, 6.56, 7.74, 8.51, 9.13}},
-	{60, [mostQuantities]float64{4.00, 4.00, 4.76, 5.87, 6.75, 7.34}},
-	{80, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{100, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{150, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{200, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{300, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{500, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{1000, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{2000, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{5000, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-	{20000, [mostQuantities]float64{4.00, 4.00, 4.00, 4.00, 4.00, 4.00}},
-}
-
 // limitTable holds default limits in robust spreads: number of devices, and for 1 to
 // 6 quantities the limit with which 1.9 % of normal lots get any false alarm.
 var limitTable = []sizeRow{
@@ -77,10 +30,10 @@ var limitTable = []sizeRow{
 	{39, [mostQuantities]float64{4.60, 4.98, 5.20, 5.36, 5.49, 5.59}},
 	{45, [mostQuantities]float64{4.53, 4.88, 5.08, 5.22, 5.32, 5.42}},
 	{46, [mostQuantities]float64{4.48, 4.84, 5.02, 5.16, 5.27, 5.36}},
-	{53, [mostQuantities]float64{4.38, 4.75, 4.93, 5.08, 5.18, 5.27}},
+	{53, [mostQuantities]float64{4.39, 4.75, 4.93, 5.08, 5.18, 5.27}},
 	{54, [mostQuantities]float64{4.36, 4.73, 4.90, 5.03, 5.13, 5.21}},
-	{60, [mostQuantities]float64{4.29, 4.65, 4.84, 4.96, 5.05, 5.13}},
-	{80, [mostQuantities]float64{4.18, 4.46, 4.62, 4.74, 4.83, 4.91}},
+	{60, [mostQuantities]float64{4.30, 4.67, 4.84, 4.96, 5.05, 5.13}},
+	{80, [mostQuantities]float64{4.18, 4.47, 4.65, 4.77, 4.87, 4.96}},
 	{100, [mostQuantities]float64{4.15, 4.39, 4.55, 4.66, 4.74, 4.82}},
 	{150, [mostQuantities]float64{4.12, 4.34, 4.46, 4.55, 4.61, 4.67}},
 	{200, [mostQuantities]float64{4.13, 4.33, 4.43, 4.52, 4.58, 4.64}},

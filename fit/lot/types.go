@@ -18,8 +18,14 @@
 // was found by simulation, see limits.go. Lots with heavier tails get more: with
 // those of Student's t with 5 degrees of freedom in all that differs, 5 % of lots
 // of 10, 15 % of lots of 20, 32 % of lots of 40 and 71 % of lots of 120 have a
-// flagged device (by one quantity alone 6, 14, 25 and 58 %). Of lots spread evenly
-// over a range (sorted by their seller) up to 7 % are called two populations.
+// flagged device (by one quantity alone 6, 14, 25 and 58 %). Two populations are
+// told by a test of its own, which fewer than 1 % of lots of one population pass,
+// also where they are spread evenly over a range (sorted by their seller) or have
+// such tails; lots of fewer than 8 are never parted.
+//
+// [SpecOf] holds a lot against the limits of its data sheet by the rule that is stored
+// with it. It gives verdicts on devices and what follows for the parts that were not
+// measured; what is to be done is the reader's to decide.
 package lot
 
 import (
@@ -48,9 +54,13 @@ func CurveKey(current float64) fit.Key {
 
 // Device is one device of the lot with the result of its fit.
 type Device struct {
-	Name    string
-	Control bool // kept for checking the bench: in no statistic
-	Result  fit.Result
+	Name     string
+	Control  bool    // kept for checking the bench: in no statistic
+	DateCode string  // written on it; "": not known
+	Tube     string  // tube, tray or reel it came in; "": not known
+	Unlike   string  // why its V_GS(th) cannot be held against the data sheet: not measured at its condition; "": it can
+	Reached  float64 // V, greatest gate voltage that it was given, by magnitude and with the sign that turns it on; 0: not known
+	Result   fit.Result
 }
 
 // Summary is the spread of one quantity over the devices that have it, in the
@@ -103,16 +113,23 @@ type Verdict struct {
 	Distance map[fit.Key]float64
 }
 
-// Split is the parting of a lot in two populations at a gap of one quantity.
+// Split is the parting of a lot in two populations at a gap of one quantity. It is
+// told where Score exceeds Bar, by a test whose basis is [SplitBasis].
 type Split struct {
 	By         fit.Key
 	At         float64  // middle of the gap
 	Low, High  []string // names, in the order given
 	GapLow     float64  // greatest value of the lower group
 	GapHigh    float64  // least value of the upper group
+	Score      float64  // evidence for two groups: twice the logarithm of a ratio of likelihoods
+	Bar        float64  // what Score must exceed, for this number of devices and of quantities looked at
 	Text       string
-	SecondAlso fit.Key // another quantity that parts the lot in the same way, "" if none
+	SecondAlso fit.Key  // another quantity that parts the lot in the same way, "" if none
+	Origins    []Origin // date codes and tubes of the two groups, where at least two of either are known
 }
+
+// SplitBasis says what the bar of a [Split] rests on.
+const SplitBasis = "fewer than 1 % of lots of one population pass the bar, all quantities looked at together: by simulation 0.4 % of normal lots, 0.8 % of lots spread evenly over a range or with the tails of Student's t with 5 degrees of freedom"
 
 // Spread is the whole answer for one lot.
 type Spread struct {

@@ -16,7 +16,7 @@ func NiceWidth(devs []Device, by fit.Key) float64 {
 	const bins, fallback = 6, 0.05
 	var values []float64
 	for i := range devs {
-		if x, _ := valueOf(&devs[i], by); counts(&devs[i]) && !math.IsNaN(x) {
+		if x, _ := valueOf(&devs[i].Result, by); counts(&devs[i]) && !math.IsNaN(x) {
 			values = append(values, x)
 		}
 	}

@@ -21,7 +21,8 @@ var names = map[fit.Key]string{
 	KeySpan:        "gate span from the test current to the idle current",
 }
 
-func nameOf(k fit.Key) string {
+// NameOf is the quantity as it stands in a sentence.
+func NameOf(k fit.Key) string {
 	if n, ok := names[k]; ok {
 		return n
 	}
@@ -119,7 +120,7 @@ func offSentence(c *column, b *band, i int, whose, basis string) string {
 			way = "from" // above and below would mislead with negative voltages
 		}
 	}
-	text := fmt.Sprintf("%s is %s, %s %s %s median of %s", nameOf(c.key), show(c.key, v), off, way, whose, show(c.key, mid))
+	text := fmt.Sprintf("%s is %s, %s %s %s median of %s", NameOf(c.key), show(c.key, v), off, way, whose, show(c.key, mid))
 	far := math.Abs(b.distance(c, i))
 	if far <= b.k {
 		l := b.limit(c)
@@ -131,11 +132,12 @@ func offSentence(c *column, b *band, i int, whose, basis string) string {
 // sentence tells of two groups in one lot.
 func (g *twoGroups) sentence() string {
 	c := g.col
-	text := fmt.Sprintf("two populations by %s: %s and %s with a gap of %s between them", nameOf(c.key),
+	text := fmt.Sprintf("two populations by %s: %s and %s with a gap of %s between them", NameOf(c.key),
 		groupWords(c, g.lower), groupWords(c, g.upper), gapWords(c, g.parts))
 	if g.also != nil {
-		text += fmt.Sprintf(", and %s parts them in the same way", nameOf(g.also.key))
+		text += fmt.Sprintf(", and %s parts them in the same way", NameOf(g.also.key))
 	}
+	text += fmt.Sprintf(" (score %s, bar %s: fewer than 1 %% of lots of one population pass it)", short(g.parts.score), short(g.bar))
 	return text + "; this is not evidence of origin: stop, ask the source, measure all devices"
 }
 

@@ -5,7 +5,6 @@ import (
 
 	"gonum.org/v1/gonum/integrate/quad"
 	"gonum.org/v1/gonum/mathext"
-	"gonum.org/v1/gonum/stat/distuv"
 )
 
 // Tail probabilities are taken from the tail itself, never as 1 minus the other
@@ -37,8 +36,10 @@ func TUpper(t, df float64) float64 {
 		return math.NaN()
 	case math.IsInf(df, 1):
 		return NormalUpper(t)
-	case math.IsInf(t, 0):
-		return map[bool]float64{true: 0, false: 1}[t > 0]
+	case math.IsInf(t, 1):
+		return 0
+	case math.IsInf(t, -1):
+		return 1
 	case t < 0:
 		return 1 - TUpper(-t, df)
 	case t < 0.5:
@@ -119,8 +120,8 @@ func UpperT(p, df float64) float64 {
 			return t
 		}
 		tail := TUpper(t, df)
-		if tail == 0 {
-			u -= 0.01 // past the smallest number: a little back
+		if tail < 0x1p-1021 {
+			u -= 0.01 // past the smallest number that keeps its digits: a little back
 			continue
 		}
 		step := math.Log(tail/p) * tail / math.Exp(tLogDensity(t, df)+u)
@@ -162,7 +163,7 @@ func ChiSquareQuantile(p, df float64) float64 {
 	if !(p > 0 && p < 1) || !(df > 0) {
 		return math.NaN()
 	}
-	return 2 * mathext.GammaIncRegInv(df/2, p)
+	return chiSquareAt(p, 1-p, df)
 }
 
 // ChiSquareUpperQuantile is the value that chi-square with df degrees of freedom
@@ -171,7 +172,7 @@ func ChiSquareUpperQuantile(p, df float64) float64 {
 	if !(p > 0 && p < 1) || !(df > 0) {
 		return math.NaN()
 	}
-	return 2 * mathext.GammaIncRegCompInv(df/2, p)
+	return chiSquareAt(1-p, p, df)
 }
 
 // FUpper is the probability that F with d1 and d2 degrees of freedom exceeds f.
@@ -183,7 +184,7 @@ func FUpper(f, d1, d2 float64) float64 {
 	if f <= 0 {
 		return 1
 	}
-	return mathext.RegIncBeta(d2/2, d1/2, 1/(1+f*(d1/d2)))
+	return math.Min(1, mathext.RegIncBeta(d2/2, d1/2, 1/(1+f*(d1/d2))))
 }
 
 // FQuantile is the value that F with d1 and d2 degrees of freedom falls below
@@ -192,5 +193,70 @@ func FQuantile(p, d1, d2 float64) float64 {
 	if !(p > 0 && p < 1) || !(d1 > 0) || !(d2 > 0) {
 		return math.NaN()
 	}
-	return distuv.F{D1: d1, D2: d2}.Quantile(p)
+	start := NormalQuantile(p) * math.Sqrt(2/d1+2/d2) // nearly normal in the logarithm
+	constant := mathext.Lbeta(d1/2, d2/2)
+	return positiveAt(p, 1-p, start,
+		func(x float64) float64 { return FUpper(1/x, d2, d1) },
+		func(x float64) float64 { return FUpper(x, d1, d2) },
+		func(x float64) float64 {
+			return d1/2*math.Log(x*d1/d2) - (d1+d2)/2*math.Log1p(x*d1/d2) - constant
+		})
+}
+
+// chiSquareAt is the value with p below and q above.
+func chiSquareAt(p, q, df float64) float64 {
+	z := NormalQuantile(p)
+	if q < p {
+		z = -NormalQuantile(q)
+	}
+	start := math.Log(df)
+	if root := 1 - 2/(9*df) + z*math.Sqrt(2/(9*df)); root > 0 { // the cube root is nearly normal
+		start += 3 * math.Log(root)
+	}
+	constant, _ := math.Lgamma(df / 2)
+	return positiveAt(p, q, start,
+		func(x float64) float64 { return ChiSquareLower(x, df) },
+		func(x float64) float64 { return ChiSquareUpper(x, df) },
+		func(x float64) float64 { return df/2*math.Log(x/2) - x/2 - constant })
+}
+
+// positiveAt is the positive value with probability p below and q above, from the
+// tail that is the smaller one, by Newton's method on logarithms of both: there
+// the tails are concave, so that after the first step it comes from one side.
+// start is a guess of the logarithm, density the logarithm of that of ln x. The
+// library's inverse functions are not used: they panic far out.
+func positiveAt(p, q, start float64, lower, upper, density func(x float64) float64) float64 {
+	tail, want, sign := lower, p, -1.0
+	if q < p {
+		tail, want, sign = upper, q, 1
+	}
+	u := math.Max(-20, math.Min(start, 20))
+	last := u // where the tail was a number above 0
+	for range 200 {
+		x := math.Exp(u)
+		switch {
+		case x == 0 || math.IsNaN(x):
+			return x
+		case math.IsInf(x, 1):
+			return x
+		}
+		v := tail(x)
+		if v < 0x1p-1021 { // past the smallest number that keeps its digits: back
+			if math.Abs(u-last) < 1e-12 {
+				u -= sign
+				last = u
+			} else {
+				u = last + (u-last)/4
+			}
+			continue
+		}
+		last = u
+		step := sign * math.Log(v/want) * math.Exp(math.Log(v)-density(x))
+		step = math.Max(-50, math.Min(step, 50))
+		u += step
+		if !(math.Abs(step) > 4e-16*math.Max(1, math.Abs(u))) {
+			break
+		}
+	}
+	return math.Exp(u)
 }

@@ -1,26 +1,39 @@
 package stats
 
-import "math"
+import (
+	"math"
+
+	"gonum.org/v1/gonum/integrate/quad"
+)
 
 // NoncentralTUpper is the probability that noncentral t with df degrees of
-// freedom and noncentrality delta exceeds t; NaN for df not above 0. df may be
+// freedom and noncentrality delta exceeds t; NaN for df below 0.01. df may be
 // +Inf: the normal distribution about delta. Relative error below 1e-10 in both
 // tails.
 //
 // Source: the definition, (z+delta)/s > t with z standard normal and s² a
 // chi-square over its degrees of freedom, integrated over ln s by the trapezoid
-// rule, whose error falls exponentially with the step here. Checked: TestTails,
+// rule, whose error falls exponentially with the step here; for a delta far above
+// the square root of df, over where the normal tail rises only. Checked: TestTails,
 // TestTailsAgainstManyDigits.
 func NoncentralTUpper(t, df, delta float64) float64 {
 	switch {
-	case !(df > 0) || math.IsNaN(t) || math.IsNaN(delta) || math.IsInf(delta, 0):
+	case !(df >= 0.01) || math.IsNaN(t) || math.IsNaN(delta) || math.IsInf(delta, 0):
 		return math.NaN()
-	case math.IsInf(t, 0):
-		return map[bool]float64{true: 0, false: 1}[t > 0]
+	case math.IsInf(t, 1):
+		return 0
+	case math.IsInf(t, -1):
+		return 1
 	case math.IsInf(df, 1):
 		return NormalUpper(t - delta)
 	case t == 0:
 		return NormalUpper(-delta)
+	case t > 0 && delta < -39:
+		return 0 // below the smallest number
+	case t < 0 && delta > 39:
+		return 1
+	case math.Abs(delta) > 50 && delta*delta > 50*df:
+		return steep(t, df, delta)
 	}
 	return mixed(t, df, delta)
 }
@@ -36,7 +49,7 @@ func NoncentralTLower(t, df, delta float64) float64 {
 // The value exceeded with a small probability p is
 // -NoncentralTQuantile(p, df, -delta). Checked: TestTails.
 func NoncentralTQuantile(p, df, delta float64) float64 {
-	if !(p > 0 && p < 1) || !(df > 0) || math.IsNaN(delta) || math.IsInf(delta, 0) {
+	if !(p > 0 && p < 1) || !(df >= 0.01) || math.IsNaN(delta) || math.IsInf(delta, 0) {
 		return math.NaN()
 	}
 	if p > 0.5 {
@@ -49,21 +62,29 @@ func NoncentralTQuantile(p, df, delta float64) float64 {
 	}
 	hi := math.Asinh(delta) // above the median or little below
 	lo := hi
-	for step := 0.5; !(f(hi) >= 0); step *= 2 {
-		lo, hi = hi, hi+step
+	fhi := f(hi)
+	flo := fhi
+	for step := 0.5; !(fhi >= 0); step *= 2 {
+		lo, flo = hi, fhi
+		hi += step
+		fhi = f(hi)
 	}
-	for step := 0.5; f(lo) > 0; step *= 2 {
+	for step := 0.5; flo > 0; step *= 2 {
 		if lo < -700 {
 			return math.Inf(-1)
 		}
 		lo -= step
+		flo = f(lo)
 	}
-	return math.Sinh(rootWithin(f, lo, hi))
+	return math.Sinh(falsePosition(f, lo, flo, hi, fhi, 1e-17))
 }
 
 // mixed is the probability that a standard normal value exceeds s t - delta,
 // where s² is chi-square with df degrees of freedom over df, for finite arguments.
 func mixed(t, df, delta float64) float64 {
+	if df > 1e15 {
+		return NormalUpper(t - delta)
+	}
 	a := df / 2
 	// Density of u = ln s: c exp(-a(e^{2u}-1-2u)). The logarithm of the integrand
 	// is concave in s; its peak is where this slope is 0.
@@ -87,7 +108,10 @@ func mixed(t, df, delta float64) float64 {
 	}
 	peak := math.Log(lo)
 	ts := t * lo
-	curvature := 4*a*lo*lo + ts*ts + math.Abs(ts)*(math.Abs(ts-delta)+1) + delta*delta + 1
+	curvature := 4*a*lo*lo + (math.Abs(delta)+4)*(math.Abs(delta)+4)
+	if z := ts - delta; z > -4 { // else the normal tail is 1 here
+		curvature += ts*ts + math.Abs(ts)*(math.Abs(z)+1)
+	}
 	// Half a width of the peak; and the integrand grows beyond an imaginary part of
 	// π/4, for which the error is exp(-π²/2h).
 	h := math.Min(0.5/math.Sqrt(curvature), 0.13)
@@ -106,6 +130,33 @@ func mixed(t, df, delta float64) float64 {
 		}
 	}
 	return math.Min(1, sum*h*chiScale(a))
+}
+
+// steep is [mixed] for t and delta of one sign and a delta so large that the
+// chi-square hardly changes while the normal tail goes from 0 to 1.
+func steep(t, df, delta float64) float64 {
+	sign := math.Copysign(1, delta)
+	t, delta = math.Abs(t), math.Abs(delta)
+	chi := func(z float64) float64 { r := (delta + z) / t; return df * r * r }
+	// z = s t - delta. For positive signs the tail falls with z: all of it below
+	// -10, none above 39; else it rises.
+	from, to := -10.0, 39.0
+	sum := ChiSquareLower(chi(from), df)
+	if sign < 0 {
+		from, to = -39, 10
+		sum = ChiSquareUpper(chi(to), df)
+	}
+	a := df / 2
+	logScale := math.Log(chiScale(a))
+	density := func(z float64) float64 {
+		s := (delta + z) / t
+		return math.Exp(logScale-a*((s-1)*(s+1)-2*math.Log(s))) / (delta + z) * NormalUpper(sign*z)
+	}
+	const step = 1.75
+	for z := from; z < to; z += step {
+		sum += quad.Fixed(density, z, z+step, 16, quad.Legendre{}, 0)
+	}
+	return math.Min(1, sum)
 }
 
 // hazard is the density of a standard normal value over the probability of a
@@ -127,61 +178,4 @@ func chiScale(a float64) float64 {
 	r := 1 / (a * a)
 	series := (1./12 - r*(1./360-r*(1./1260-r*(1./1680-r/1188)))) / a
 	return 2 * math.Sqrt(a/(2*math.Pi)) * math.Exp(-series)
-}
-
-// rootWithin is where f, which rises from below 0 at lo to above 0 at hi or falls,
-// crosses 0, to a few units in the last place: false position after Anderson and
-// Björck ("A new high order method of regula falsi type", BIT 13, 1973), halving
-// where it does not gain.
-func rootWithin(f func(float64) float64, lo, hi float64) float64 {
-	flo, fhi := f(lo), f(hi)
-	if flo == 0 {
-		return lo
-	}
-	if fhi == 0 {
-		return hi
-	}
-	side, width := 0, math.Abs(hi-lo)
-	for k := range 200 {
-		if math.Abs(hi-lo) <= 4e-16*math.Max(math.Abs(lo), math.Abs(hi)) {
-			break
-		}
-		x := hi - fhi*(hi-lo)/(fhi-flo)
-		if k%4 == 3 {
-			if math.Abs(hi-lo) > width/4 || !(x > math.Min(lo, hi) && x < math.Max(lo, hi)) {
-				x = lo + (hi-lo)/2
-			}
-			width = math.Abs(hi - lo)
-		}
-		if x == lo || x == hi || math.IsNaN(x) || math.IsInf(x, 0) {
-			x = lo + (hi-lo)/2
-		}
-		fx := f(x)
-		if fx == 0 || math.IsNaN(fx) {
-			return x
-		}
-		if (fx > 0) == (fhi > 0) {
-			if side == 1 {
-				flo *= shrink(fx, fhi)
-			}
-			hi, fhi, side = x, fx, 1
-		} else {
-			if side == -1 {
-				fhi *= shrink(fx, flo)
-			}
-			lo, flo, side = x, fx, -1
-		}
-	}
-	if math.Abs(flo) < math.Abs(fhi) {
-		return lo
-	}
-	return hi
-}
-
-// shrink is the factor for the value at the end that has stayed.
-func shrink(now, before float64) float64 {
-	if m := 1 - now/before; m > 0 {
-		return m
-	}
-	return 0.5
 }

@@ -286,14 +286,19 @@ func TestAccessibility(t *testing.T) {
 	axe, err := os.ReadFile(path)
 	require.NoError(t, err)
 	b := browser(t)
-	for name, o := range map[string]invented.Options{
-		"curves":    {Devices: 30, Points: 25, Seed: 5},
-		"p-channel": {Devices: 12, Points: 25, Seed: 6, PChannel: true},
-		"spots":     {Devices: 12, Points: 1, Spots: true, Seed: 7},
-	} {
+	lots := map[string]report.Sheet{
+		"curves":    invented.Lot(invented.Options{Devices: 30, Points: 25, Seed: 5}),
+		"p-channel": invented.Lot(invented.Options{Devices: 12, Points: 25, Seed: 6, PChannel: true}),
+		"spots":     invented.Lot(invented.Options{Devices: 12, Points: 1, Spots: true, Seed: 7}),
+		"compared":  compared(two[0], two[1], invented.Against{Margin: 0.05, After: true, Paired: true}),
+	}
+	run := lots["compared"]
+	run.Trend = invented.Trend(25)
+	lots["compared"] = run
+	for name, lot := range lots {
 		for _, scheme := range []string{"light", "dark"} {
 			t.Run(name+" "+scheme, func(t *testing.T) {
-				s := serve(t, invented.Lot(o))
+				s := serve(t, lot)
 				ctx := tab(t, b, s.URL, func(ctx context.Context, _ *chromedp.Target) (chromedp.Void, error) {
 					_, err := chromedp.Call(ctx, page.SetBypassCSP, page.SetBypassCSPParams{Enabled: true})
 					return chromedp.Void{}, err

@@ -103,6 +103,9 @@ func (v *view) devices(k *known) {
 		}
 		return deviceCell{Class: "why"}
 	})
+	if judged := k.judgements(); judged != nil {
+		column(deviceHead{Text: "verdict"}, func(_ int, d *report.Device) deviceCell { return verdictCell(judged[d.Name]) })
+	}
 	if packages {
 		column(deviceHead{Text: "package"}, func(_ int, d *report.Device) deviceCell {
 			return orDash(strings.TrimSpace(d.Package + " " + d.Side))
@@ -117,6 +120,9 @@ func (v *view) devices(k *known) {
 	t.Note = "± is one standard uncertainty within the session (k = 1), the one that counts when devices of this lot are compared with each other; n is the number of points a value rests on."
 	if absolute {
 		t.Note += " ± abs. is one standard uncertainty against the SI unit, gain of the meters and tolerance of the load resistor included, the one that counts against a limit of the data sheet."
+	}
+	if k.judgements() != nil {
+		t.Note += " Beside a verdict stands the probability that the device lies within the limits of the data sheet, where its absolute uncertainty is known."
 	}
 	if k.any(fit.KeyIdss) {
 		t.Note += " " + rich(report.LeakageNote)

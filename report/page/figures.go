@@ -14,6 +14,8 @@ import (
 )
 
 type figure struct {
+	Label   string // what it shows, in a few words
+	Marks   bool   // its marks are no devices
 	SVG     template.HTML
 	Caption template.HTML
 	Data    *table
@@ -28,6 +30,8 @@ type picture struct {
 }
 
 type curvesFigure struct {
+	Switch   string // name of the switch between its pictures
+	Of       string // whose curves; "" of the lot of the page
 	Pictures []picture
 	Caption  template.HTML
 	Data     *table
@@ -185,14 +189,8 @@ func (v *view) curves(k *known, all []drawnSweep) {
 			flagged++
 		}
 	}
-	var levels []svg.Level
-	if isNumber(k.TestCurrent) {
-		levels = append(levels, svg.Level{Current: k.TestCurrent, Label: "test current " + report.FormatGiven(k.TestCurrent, "A")})
-	}
-	if isNumber(k.IdleCurrent) {
-		levels = append(levels, svg.Level{Current: k.IdleCurrent, Label: "idle current " + report.FormatGiven(k.IdleCurrent, "A")})
-	}
-	f := &curvesFigure{}
+	levels := k.marked()
+	f := &curvesFigure{Switch: "axis"}
 	desc := fmt.Sprintf("Drain current over gate voltage, %s, %d of them flagged. The numbers stand in the tables below.", plural(len(curves), "curve"), flagged)
 	unlabeled := 0
 	for _, axis := range []svg.Axis{svg.Linear, svg.SquareRoot, svg.Logarithmic} {

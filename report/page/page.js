@@ -34,6 +34,7 @@
     shown = d;
     const row = d === null ? null : rowOf.get(d);
     for (const r of readouts) {
+      if (r.dataset.t) continue; // of a picture without devices
       r.replaceChildren();
       if (row) {
         const name = document.createElement("b");
@@ -63,13 +64,35 @@
     return null;
   };
 
+  // What a mark that is no device of this lot says of itself.
+  const tipAt = (x, y) => {
+    const hit = document.elementFromPoint(x, y);
+    return hit?.closest("svg.plot") && hit.tagName === "path" && !hit.dataset.d ? hit.querySelector(":scope > title")?.textContent ?? "" : "";
+  };
+  let tipped = null;
+  const tip = (svg, text) => {
+    const r = svg.closest("figure")?.querySelector(".readout");
+    if (tipped && (!text || tipped !== r)) {
+      tipped.textContent = tipped.dataset.t ?? "";
+      tipped = null;
+      if (!text) { shown = undefined; }
+    }
+    if (!text || !r) return false;
+    show(null);
+    r.textContent = text;
+    tipped = r;
+    return true;
+  };
+
   let frame = 0;
   for (const svg of all("svg.plot")) {
     svg.addEventListener("pointermove", (e) => {
       cancelAnimationFrame(frame);
-      frame = requestAnimationFrame(() => show(near(e.clientX, e.clientY) ?? pinned));
+      frame = requestAnimationFrame(() => {
+        if (!tip(svg, tipAt(e.clientX, e.clientY))) show(near(e.clientX, e.clientY) ?? pinned);
+      });
     });
-    svg.addEventListener("pointerleave", () => { cancelAnimationFrame(frame); show(pinned); });
+    svg.addEventListener("pointerleave", () => { cancelAnimationFrame(frame); tip(svg, ""); show(pinned); });
     svg.addEventListener("click", (e) => { pinned = near(e.clientX, e.clientY); show(pinned); });
     svg.addEventListener("focusin", (e) => { if (e.target.dataset?.d) show(e.target.dataset.d); });
     // One stop for the Tab key in each picture, arrows for the rest.
@@ -96,7 +119,7 @@
     row.addEventListener("pointerenter", () => show(row.dataset.d));
     row.addEventListener("pointerleave", () => show(pinned));
   }
-  readouts.forEach((r) => { r.hidden = false; });
+  readouts.forEach((r) => { r.hidden = false; r.textContent = r.dataset.t ?? ""; });
   shown = undefined;
   show(null);
 

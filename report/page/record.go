@@ -13,9 +13,12 @@ import (
 	"gatesill/store/record"
 )
 
-// circumstances tells under what the sweeps were taken, each different condition
-// once.
-func (v *view) circumstances(k *known) {
+// conditionHeads are the heads over the rows of [conditionRows].
+var conditionHeads = []head{{"circuit", false}, {"details", false}, {"temperature", false}, {"sweeps", true}, {"measured", false}}
+
+// conditionRows tells under what the sweeps of a lot were taken, each different
+// condition once.
+func conditionRows(s *report.Sheet) [][]cell {
 	type group struct {
 		cond  record.Condition
 		n     int
@@ -25,9 +28,9 @@ func (v *view) circumstances(k *known) {
 	}
 	var groups []*group
 	at := map[record.Condition]*group{}
-	for i := range k.Devices {
-		for j := range k.Devices[i].Sweeps {
-			sw := &k.Devices[i].Sweeps[j]
+	for i := range s.Devices {
+		for j := range s.Devices[i].Sweeps {
+			sw := &s.Devices[i].Sweeps[j]
 			g := at[sw.Condition]
 			if g == nil {
 				g = &group{cond: sw.Condition, dirs: map[record.Direction]int{}, first: sw.MeasuredAt, last: sw.MeasuredAt}
@@ -42,7 +45,7 @@ func (v *view) circumstances(k *known) {
 			g.last = max(g.last, sw.MeasuredAt)
 		}
 	}
-	t := &table{Caption: "Conditions of the sweeps", Heads: []head{{"circuit", false}, {"details", false}, {"temperature", false}, {"sweeps", true}, {"measured", false}}}
+	var rows [][]cell
 	for _, g := range groups {
 		var dirs []string
 		for _, d := range []record.Direction{record.Up, record.Down, record.Spot} {
@@ -60,23 +63,28 @@ func (v *view) circumstances(k *known) {
 		if g.last != g.first {
 			when += " to " + g.last
 		}
-		t.Rows = append(t.Rows, []cell{optional(report.CircuitWords(cond.Circuit)), optional(strings.Join(report.ConditionWords(cond), "; ")), optional(temp), number(strings.Join(dirs, ", ")), optional(when)})
+		rows = append(rows, []cell{optional(report.CircuitWords(cond.Circuit)), optional(strings.Join(report.ConditionWords(cond), "; ")), optional(temp), number(strings.Join(dirs, ", ")), optional(when)})
 	}
-	if len(t.Rows) > 0 {
-		v.Conditions = t
-		if len(groups) > 1 {
-			t.Note = "The sweeps were not all taken under one condition. Values under unlike conditions are not comparable without more."
+	return rows
+}
+
+func (v *view) circumstances(k *known) {
+	if rows := conditionRows(k.Sheet); len(rows) > 0 {
+		v.Conditions = &table{Caption: "Conditions of the sweeps", Heads: conditionHeads, Rows: rows}
+		if len(rows) > 1 {
+			v.Conditions.Note = "The sweeps were not all taken under one condition. Values under unlike conditions are not comparable without more."
 		}
 	}
-	v.meters(k)
+	v.Meters = metersTable(k.Sheet)
 	v.sessions(k)
 	v.budget(k)
 }
 
-func (v *view) meters(k *known) {
-	list := instruments(k.Sheet)
+// metersTable lists the instruments of a lot; nil when none is known.
+func metersTable(s *report.Sheet) *table {
+	list := instruments(s)
 	if len(list) == 0 {
-		return
+		return nil
 	}
 	t := &table{Caption: "Instruments", Heads: []head{{"role", false}, {"instrument", false}, {"accuracy statement", false}, {"calibrated", false}, {"due", false}, {"sweeps", true}}}
 	for _, m := range list {
@@ -87,7 +95,7 @@ func (v *view) meters(k *known) {
 		}
 		t.Rows = append(t.Rows, []cell{{Text: rich(m.Role), Head: true}, {Text: plain(meterName(m.Instrument))}, optional(statement), optional(m.Calibrated), due, number(strconv.Itoa(m.sweeps))})
 	}
-	v.Meters = t
+	return t
 }
 
 // statementWords is the accuracy statement of a meter, range by range; where only the
@@ -256,7 +264,11 @@ func (v *view) rules(k *known) {
 	} else {
 		add("Data-sheet limits of V_GS(th): %s.", report.NotGiven)
 	}
-	add("Guard band at a limit: %s.", orNotGiven(report.AmountWords(k.Sheet.Lot.Guard)))
+	if k.Spec != nil && k.Spec.Why == "" {
+		add("Rule at a limit: %s.", k.GuardRule())
+	} else {
+		add("Guard band at a limit: %s.", orNotGiven(report.AmountWords(k.Sheet.Lot.Guard)))
+	}
 	margin := orNotGiven(report.AmountWords(k.Sheet.Lot.Margin))
 	if at := k.Sheet.Lot.MarginSetAt; at != "" && !k.Sheet.Lot.Margin.IsZero() {
 		margin += ", set " + report.Clean(at)

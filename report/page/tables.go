@@ -8,6 +8,7 @@ import (
 	"strings"
 
 	"gatesill/fit"
+	"gatesill/fit/lot"
 	"gatesill/report"
 )
 
@@ -57,6 +58,10 @@ func (v *view) spread(k *known) {
 			{richf("Lower group, %s, %s up to %s", plural(len(sp.Low), "device"), symbol, report.FormatPlain(sp.GapLow, math.NaN(), unit)), foldNames(sp.Low)},
 			{richf("Upper group, %s, %s from %s", plural(len(sp.High), "device"), symbol, report.FormatPlain(sp.GapHigh, math.NaN(), unit)), foldNames(sp.High)},
 		}
+		for _, o := range sp.Origins {
+			v.Groups = append(v.Groups, group{richf("By %s", o.Of), rich(report.OriginWords(o))})
+		}
+		v.GroupNote = richf("Score %.3g, bar %.3g: %s.", sp.Score, sp.Bar, lot.SplitBasis)
 	}
 	l := &table{Caption: "Limits behind the flags", Heads: []head{{"quantity", false}, {"unit", false}, {"low", true}, {"high", true}, {"× robust sd", true}, {"basis", false}}}
 	for _, key := range report.KeysIn(k.Spread.Limits) {

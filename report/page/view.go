@@ -24,12 +24,16 @@ type view struct {
 	Lead       []template.HTML // the summary, one sentence each
 	Tiles      []tile
 	Alerts     []alert
+	Compared   *compared // nil: not compared with another lot
+	Trend      *trend    // nil: no run of lots was given
 	Curves     *curvesFigure
 	NoCurves   string // why there are none
 	Strip      *figure
 	Spread     *table
 	Limits     *table
 	Groups     []group // the two populations, where there are two
+	GroupNote  template.HTML
+	Spec       *specView // nil: the part has no limits
 	Bins       *table
 	Unsorted   []group // in no bin, by reason
 	Devices    deviceTable
@@ -143,6 +147,7 @@ var (
 func rich(words string) template.HTML {
 	text := template.HTMLEscapeString(report.Clean(words))
 	text = symbols.Replace(text)
+	text = strings.ReplaceAll(text, "n = ", "n\u00a0=\u00a0")
 	text = stamp.ReplaceAllString(text, "$1 $2 UTC")
 	text = date.ReplaceAllString(text, `<span class="nw">$0</span>`)
 	return template.HTML(beforeUnit.ReplaceAllString(text, "$1\u00a0$2"))
@@ -169,9 +174,12 @@ func newView(s *report.Sheet) *view {
 	}
 	k := newKnown(s)
 	v.summary(k)
+	v.compared(k)
+	v.trend(k)
 	v.figures(k)
 	v.spread(k)
 	v.bins(k)
+	v.specification(k)
 	v.devices(k)
 	v.flags(k)
 	v.leftOut(k)

@@ -1,6 +1,7 @@
-// Package svg draws the plots: transfer curves over the gate voltage and the
-// strip plot of one quantity with its bins. It is the one renderer for files,
-// for the report page and for the bench page.
+// Package svg draws the plots: transfer curves over the gate voltage, the strip
+// plot of one quantity with its bins, and of two lots their distributions, their
+// curves, the shift between them and the run of lots it stands in. It is the one
+// renderer for files, for the report page and for the bench page.
 //
 // It computes nothing but positions on the paper, needs no script and no font,
 // and fetches nothing. Whatever it is given, it writes well-formed XML with
@@ -52,6 +53,25 @@ const Style = `.plot{--plot-ink:#1b1f24;--plot-quiet:#d9dde1;--plot-soft:#5a6470
 .plot .lines path:hover,.plot .lines path:focus,.plot .lines .on{stroke:var(--plot-ink);stroke-opacity:1;stroke-width:var(--plot-strong,16);outline:none}
 .plot .dots path:hover,.plot .dots path:focus,.plot .dots .on{stroke:var(--plot-ink);stroke-opacity:1;outline:none}
 .plot .dots .flag:hover,.plot .dots .flag:focus,.plot .dots .flag.on{stroke-width:3.4}
+.plot .this{fill:none;stroke:var(--plot-line);stroke-width:2;stroke-linejoin:round}
+.plot .that{fill:none;stroke:var(--plot-ink);stroke-width:1.8;stroke-linejoin:round;stroke-dasharray:7 4}
+.plot .fine .this{stroke-width:10}
+.plot .fine .that{stroke-width:9;stroke-dasharray:35 20}
+.plot .fthis{fill:var(--plot-line);fill-opacity:.2}
+.plot .fthat{fill:var(--plot-ink);fill-opacity:.1}
+.plot .fine .thin{stroke-width:4.5;stroke-opacity:.45}
+.plot .fine .thin.that{stroke-dasharray:20 12}
+.plot .mthis{fill:var(--plot-line);stroke:var(--plot-line);stroke-width:1.6}
+.plot .mthat{fill:var(--plot-paper);stroke:var(--plot-ink);stroke-width:1.6}
+.plot .far{fill:var(--plot-paper);stroke:var(--plot-flag);stroke-width:2}
+.plot .span{fill:none;stroke:var(--plot-ink);stroke-width:1.4}
+.plot .faint{stroke-width:1;stroke-opacity:.55}
+.plot .halo{paint-order:stroke;stroke:var(--plot-paper);stroke-width:3.5px;stroke-linejoin:round}
+.plot .strong{stroke-width:3.2}
+.plot .zero{fill:none;stroke:var(--plot-ink);stroke-width:1.4}
+.plot .room{fill:var(--plot-mark);fill-opacity:.12}
+.plot .mthis:hover,.plot .mthat:hover,.plot .mthis.on{stroke:var(--plot-flag);stroke-width:3}
+.plot .fine .thin:hover,.plot .fine .thin.on{stroke:var(--plot-flag);stroke-opacity:1;stroke-width:11}
 @media (forced-colors:active){.plot{--plot-ink:CanvasText;--plot-quiet:GrayText;--plot-soft:CanvasText;--plot-paper:Canvas;--plot-line:LinkText;--plot-flag:Highlight;--plot-mark:CanvasText}}
 `
 

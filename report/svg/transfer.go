@@ -100,6 +100,8 @@ type transfer struct {
 	keep   []bool
 	stack  [][2]int
 	ends   []end // of flagged curves, for their names
+
+	levelsRight bool // words of the levels stand at the right
 }
 
 // place is a point of a curve in fine units; brk: the curve does not come from
@@ -248,53 +250,7 @@ func widenLog(lo, hi float64) (float64, float64) {
 func (t *transfer) axes() {
 	xs, ys := t.x.ticks(90, report.ScaleOf("V", max(math.Abs(t.x.lo), math.Abs(t.x.hi)))), t.y.ticks(44, t.unit)
 	xu := report.ScaleOf("V", max(math.Abs(t.x.lo), math.Abs(t.x.hi)))
-	t.raw(`<path class="grid" d="`)
-	for _, k := range xs {
-		t.raw("M")
-		t.num(t.x.at(k.value))
-		t.raw(" ")
-		t.num(t.t)
-		t.raw("V")
-		t.num(t.d)
-	}
-	for _, k := range ys {
-		if k.minor {
-			continue
-		}
-		t.raw("M")
-		t.num(t.l)
-		t.raw(" ")
-		t.num(t.y.at(k.value))
-		t.raw("H")
-		t.num(t.r)
-	}
-	t.raw(`"/><path class="axis" d="M`)
-	t.num(t.l)
-	t.raw(" ")
-	t.num(t.t)
-	t.raw("V")
-	t.num(t.d)
-	t.raw("H")
-	t.num(t.r)
-	for _, k := range ys {
-		if k.minor {
-			t.raw("M")
-			t.num(t.l)
-			t.raw(" ")
-			t.num(t.y.at(k.value))
-			t.raw("h4")
-		}
-	}
-	t.raw(`"/>`)
-	for _, k := range xs {
-		t.text("tick", t.x.at(k.value), t.d+17, "middle", k.label)
-	}
-	for _, k := range ys {
-		if !k.minor {
-			t.text("tick", t.l-7, t.y.at(k.value)+4, "end", k.label)
-		}
-	}
-	t.text("", (t.l+t.r)/2, t.d+38, "middle", "gate voltage V_GS ("+xu.Unit("V")+")")
+	t.grid(&t.x, &t.y, xs, ys)
 	name := "drain current I_D"
 	if t.sign < 0 {
 		name = "drain current \u2212I_D"
@@ -303,16 +259,10 @@ func (t *transfer) axes() {
 	if t.o.Axis == Logarithmic {
 		unit = "A"
 	}
-	name += " (" + unit + ", " + t.o.Axis.String() + ")"
-	t.raw(`<g transform="translate(15 `)
-	t.num((t.t + t.d) / 2)
-	t.raw(`) rotate(-90)">`)
-	t.text("", 0, 0, "middle", name)
-	t.raw("</g>")
+	t.axisNames("gate voltage V_GS ("+xu.Unit("V")+")", name+" ("+unit+", "+t.o.Axis.String()+")")
 }
 
-// levels marks currents across the picture, their words at the left where the
-// curves are low.
+// levels marks currents across the picture, their words at one side.
 func (t *transfer) levels() {
 	for _, l := range t.o.Levels {
 		y := t.y.at(l.Current)
@@ -329,8 +279,14 @@ func (t *transfer) levels() {
 		if y > t.d-14 { // no room between the line and the axis
 			y = t.d - 1
 		}
-		t.text("reft", t.l+8, y-4, "", l.Label)
-		t.taken = append(t.taken, box{t.l, y - 16, t.l + 8 + textWidth(l.Label, 12), y})
+		w := 8 + textWidth(l.Label, 12)
+		if t.levelsRight {
+			t.text("reft halo", t.r-8, y-4, "end", l.Label)
+			t.taken = append(t.taken, box{t.r - w, y - 16, t.r, y})
+			continue
+		}
+		t.text("reft halo", t.l+8, y-4, "", l.Label)
+		t.taken = append(t.taken, box{t.l, y - 16, t.l + w, y})
 	}
 }
 

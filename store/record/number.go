@@ -192,6 +192,8 @@ var unitSpellings = map[string][]string{
 	"degC": {"degC", "\u00b0C", "\u2103", "C"},
 	"K/W":  {"K/W", "\u00b0C/W", "degC/W", "C/W"},
 	"Hz":   {"Hz"},
+	"V/K":  {"V/K", "V/\u00b0C", "V/degC", "V/C"},
+	"A/V2": {"A/V\u00b2", "A/V^2", "A/V2"},
 }
 
 // prefixes lists the SI prefixes taken, with their powers of ten. The three

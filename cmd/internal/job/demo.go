@@ -205,10 +205,11 @@ func (d *demo) quietly(f func(*Env) error) error {
 
 func (d *demo) spring(ctx context.Context) error {
 	part, test, idle := "GX-30", record.Known(10e-3), record.Known(0.25)
-	lo, hi := record.Known(2), record.Known(4)
+	lo, hi, vds := record.Known(2), record.Known(4), record.Known(13.8)
+	guard := record.Amount{Value: 2, Unit: "u"}
 	supplier, sampled := "first dealer", "all of the bag"
-	d.say("lot add spring --part GX-30 --test-current 10mA --idle-current 250mA --vgsth-min 2 --vgsth-max 4 --supplier 'first dealer' --sampled 'all of the bag'")
-	if err := LotAdd(ctx, d.env, "spring", LotEdit{Part: &part, TestCurrent: &test, IdleCurrent: &idle, VgsthMin: &lo, VgsthMax: &hi, Supplier: &supplier, Sampled: &sampled}); err != nil {
+	d.say("lot add spring --part GX-30 --test-current 10mA --idle-current 250mA --test-vds 13.8V --vgsth-min 2 --vgsth-max 4 --guard 2u --supplier 'first dealer' --sampled 'all of the bag'")
+	if err := LotAdd(ctx, d.env, "spring", LotEdit{Part: &part, TestCurrent: &test, IdleCurrent: &idle, TestVDS: &vds, VgsthMin: &lo, VgsthMax: &hi, Guard: &guard, Supplier: &supplier, Sampled: &sampled}); err != nil {
 		return err
 	}
 	lot := d.lot("S", 5, 2.92, 0.055)
@@ -288,7 +289,7 @@ func (d *demo) report(ctx context.Context, lot string) error {
 		verb, file string
 		write      func(string) error
 	}{
-		{"report", lot + ".html", func(p string) error { return Report(ctx, d.env, lot, p, SheetOptions{Method: "auto"}) }},
+		{"report", lot + ".html", func(p string) error { return Report(ctx, d.env, lot, p, "", SheetOptions{Method: "auto"}) }},
 		{"export", lot + ".csv", func(p string) error { return Export(ctx, d.env, lot, p, false, SheetOptions{Method: "auto"}) }},
 	} {
 		path := filepath.Join(d.dir, out.file)

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"strings"
 
+	"gatesill/fit/gauge"
 	"gatesill/report"
 	"gatesill/store"
 	"gatesill/store/record"
@@ -49,8 +50,9 @@ func deviceOf(tx *store.Tx, lot, name string) (record.Device, record.Lot, error)
 	return record.Device{}, record.Lot{}, Usage("say which with --lot LOT", "device %q is in %d lots: %s", name, len(ds), strings.Join(names, ", "))
 }
 
-// DeviceShow shows history and audit trail of one device.
-func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
+// DeviceShow shows history and audit trail of one device; tempco, V/K, sets what it
+// read in other sessions beside what it would have read at the first temperature.
+func DeviceShow(ctx context.Context, env *Env, lot, name string, tempco record.Num) error {
 	d, l, err := env.findDevice(ctx, lot, name)
 	if err != nil {
 		return err
@@ -59,7 +61,8 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
 	if err != nil {
 		return err
 	}
-	f := report.DeviceFile{Lot: sheet.Lot, Device: report.Device{Device: d}}
+	f := report.DeviceFile{Lot: sheet.Lot, Device: report.Device{Device: d}, By: sheet.SortedBy, Tempco: tempco.Float()}
+	timelineOf(&f, &sheet)
 	for _, dev := range sheet.Devices {
 		if dev.ID == d.ID {
 			f.Device = dev
@@ -86,6 +89,26 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string) error {
 		return report.DeviceJSON(env.Out, f, sheet)
 	}
 	return report.DeviceHistory(env.Out, f, sheet, env.style())
+}
+
+// timelineOf fills what the device read sitting by sitting, and whether it moved by
+// itself.
+func timelineOf(f *report.DeviceFile, s *report.Sheet) {
+	runs, _ := mostly(sittingsOf(s))
+	ms := measurings(runs, f.By)
+	f.Timeline = gauge.TimelineOf(ms, f.Device.Name, f.Tempco)
+	if len(f.Timeline) < 2 {
+		return
+	}
+	known, ok := s.Repeatability[f.By]
+	if !ok {
+		known = gauge.None()
+	}
+	for _, h := range gauge.HistoryOf(ms, gauge.HistoryOptions{Tempco: f.Tempco, Known: known}) {
+		if text := h.Of(f.Device.Name); text != "" {
+			f.History = append(f.History, text)
+		}
+	}
 }
 
 func (e *Env) findDevice(ctx context.Context, lot, name string) (d record.Device, l record.Lot, err error) {

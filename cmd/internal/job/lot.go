@@ -66,14 +66,15 @@ func (e LotEdit) applyLot(l *record.Lot) {
 	set(&l.DateCode, e.DateCode)
 	set(&l.Marking, e.Marking)
 	set(&l.Sampled, e.Sampled)
-	set(&l.SendBack, e.SendBack)
 	set(&l.Note, e.Note)
 	set(&l.Quantity, e.Quantity)
 	if e.Margin != nil && *e.Margin != l.Margin {
 		l.Margin, l.MarginSetAt = *e.Margin, record.Now()
 	}
-	if e.Guard != nil || e.SendBack != nil {
-		set(&l.Guard, e.Guard)
+	guard, sendBack := l.Guard, l.SendBack
+	set(&l.Guard, e.Guard)
+	set(&l.SendBack, e.SendBack)
+	if l.Guard != guard || l.SendBack != sendBack {
 		l.DecidedAt = record.Now()
 	}
 }

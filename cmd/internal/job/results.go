@@ -154,9 +154,10 @@ func sortOptions(env *Env, s *report.Sheet, rq SortRequest) (lot.SortOptions, er
 	return opt, nil
 }
 
-// Report writes the self-contained page of a lot.
-func Report(ctx context.Context, env *Env, name, path string, o SheetOptions) error {
-	s, err := env.Sheet(ctx, name, o)
+// Report writes the self-contained page of a lot, held against a reference lot
+// where one is named.
+func Report(ctx context.Context, env *Env, name, path, reference string, o SheetOptions) error {
+	s, err := env.reportSheet(ctx, name, reference, o)
 	if err != nil {
 		return err
 	}
@@ -170,6 +171,37 @@ func Report(ctx context.Context, env *Env, name, path string, o SheetOptions) er
 		env.talk("report of lot %s: %s", report.Clean(name), report.Clean(path))
 	}
 	return nil
+}
+
+// reportSheet fits a lot, and compares it with the reference lot where one is
+// named, at the currents of that.
+func (e *Env) reportSheet(ctx context.Context, name, reference string, o SheetOptions) (report.Sheet, error) {
+	if reference == "" {
+		return e.Sheet(ctx, name, o)
+	}
+	rq := CompareRequest{}
+	var s report.Sheet
+	if err := rq.check(reference, []string{name}); err != nil {
+		return s, err
+	}
+	ref, err := e.Sheet(ctx, reference, o)
+	if err != nil {
+		return s, err
+	}
+	if s, err = e.candidateSheet(ctx, &ref, name, o); err != nil {
+		return s, err
+	}
+	by, err := comparedBy(&ref, []report.Sheet{s}, rq, o.At.IsKnown())
+	if err != nil {
+		return s, err
+	}
+	c, err := compareSheets(&ref, &s, by, rq)
+	if err != nil {
+		return s, err
+	}
+	s.Compared = &c
+	s.Trend, err = e.runOfLots(ctx, &ref, &s, by, o)
+	return s, err
 }
 
 // Export writes the lot for programs: estimates by device or points as CSV, or

@@ -10,8 +10,8 @@ import (
 )
 
 // currents settles test current and idle current of the sheet.
-func currents(s *report.Sheet, at record.Num) {
-	s.IdleCurrent = s.Part.IdleCurrent.Float()
+func currents(s *report.Sheet, at, idle record.Num) {
+	s.IdleCurrent = idle.Else(s.Part.IdleCurrent).Float()
 	spots, gm := spotCurrents(s)
 	switch {
 	case at.IsKnown():
@@ -24,7 +24,7 @@ func currents(s *report.Sheet, at record.Num) {
 		s.TestCurrent, s.TestBasis = defaultTestCurrent, "default"
 	}
 	switch {
-	case s.Part.IdleCurrent.IsKnown():
+	case idle.IsKnown(), s.Part.IdleCurrent.IsKnown():
 	case len(gm) == 1: // a list that states g_m at a current means that as the idle current
 		s.IdleCurrent = gm[0]
 	case len(spots) == 2:

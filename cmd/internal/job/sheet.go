@@ -23,6 +23,7 @@ import (
 // SheetOptions are the choices of [Env.Sheet].
 type SheetOptions struct {
 	At       record.Num // A, test current; unknown: the part's, the spot list's own, else 1 mA
+	Idle     record.Num // A, idle current; unknown: the part's, else what a spot list tells
 	Method   string     // "auto", "current", "sqrt", "linear", "ratio", "curve"
 	Limit    float64    // spread limit in robust spreads, 0: by the lot's size
 	Devices  []string   // only these, empty: all
@@ -65,11 +66,14 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	}
 	s.Version, s.Codes, s.Budget = e.Version, fit.Codes, o.Budget
 	placeSweeps(&s, sweeps)
-	currents(&s, o.At)
+	currents(&s, o.At, o.Idle)
 	start := time.Now()
 	digits := lastDigitsOf(&s)
 	if err := fitSheet(ctx, &s, o.Method, digits); err != nil {
 		return s, err
+	}
+	if err := takeRepeatability(ctx, db, &s, o.Method); err != nil {
+		return s, storeFailure(err)
 	}
 	e.detail("%s of %s fitted in %v", count(len(sweeps), "sweep"), count(len(s.Devices), "device"), time.Since(start).Round(time.Millisecond))
 	// Only now: a device is fitted the same whether it is asked for alone or not.
@@ -82,6 +86,7 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 		return s, storeFailure(err)
 	}
 	judge(&s, lot.SpreadOptions{K: o.Limit, Known: known})
+	specify(&s)
 	s.Hash = dataHash(&s)
 	if !o.ReadOnly {
 		err := db.Update(ctx, func(tx *store.Tx) error { return tx.PutEstimates(estimates(&s, o.Method, digits)) })
@@ -97,6 +102,9 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 // load reads one lot with its sweeps.
 func load(tx *store.Tx, name string) (s report.Sheet, sweeps []record.Sweep, err error) {
 	if s.Lot, s.Part, err = lotOf(tx, name); err != nil {
+		return s, nil, err
+	}
+	if err = rulesSetAt(tx, &s); err != nil {
 		return s, nil, err
 	}
 	if s.Sources, err = tx.Sources(s.Lot.ID); err != nil {
@@ -252,7 +260,9 @@ func sortedBy(s *report.Sheet) fit.Key {
 func judge(s *report.Sheet, opt lot.SpreadOptions) {
 	opt.SortedBy, opt.TestCurrent = s.SortedBy, s.TestCurrent
 	opt.PChannel = s.Part.Channel == record.PChannel
-	opt.VgsthMin, opt.VgsthMax = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	if sheetCurrent(s) { // at another current they say nothing
+		opt.VgsthMin, opt.VgsthMax = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	}
 	s.Spread = lot.SpreadOf(lotDevices(s), opt)
 	if w, ok := unlike(s); ok {
 		s.Spread.Warnings = append([]fit.Warning{w}, s.Spread.Warnings...)
@@ -262,7 +272,9 @@ func judge(s *report.Sheet, opt lot.SpreadOptions) {
 func lotDevices(s *report.Sheet) []lot.Device {
 	out := make([]lot.Device, len(s.Devices))
 	for i, d := range s.Devices {
-		out[i] = lot.Device{Name: d.Name, Control: d.Role == record.Control, Result: d.Result}
+		out[i] = lot.Device{
+			Name: d.Name, Control: d.Role == record.Control, DateCode: d.DateCode, Tube: d.Tube, Unlike: unlikeSheet(s, &s.Devices[i]), Reached: reached(s, &s.Devices[i]), Result: d.Result,
+		}
 	}
 	return out
 }

@@ -386,7 +386,7 @@ func (w *sweeper) sheetOf(device string, sw *record.Sweep) report.Sheet {
 	s := report.Sheet{Lot: w.lot, Part: w.part, Devices: []report.Device{{
 		Device: record.Device{Name: device}, Sweeps: []report.Sweep{{Sweep: *sw, Curve: curveOf(sw)}},
 	}}}
-	currents(&s, w.rq.At)
+	currents(&s, w.rq.At, record.Num{})
 	return s
 }
 

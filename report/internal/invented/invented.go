@@ -26,6 +26,8 @@ type Options struct {
 	Spots    bool // one point a device at 10 mA, no curves
 	Clean    bool // every device measured, none flagged
 	Seed     uint64
+	Lot      string  // its name; "": 2612
+	Shift    float64 // V, of every threshold, for a lot to compare with another
 }
 
 const (
@@ -81,6 +83,9 @@ func Lot(o Options) report.Sheet {
 		SortedBy: fit.KeyVgsIdle, TestCurrent: test, TestBasis: "part", IdleCurrent: idle,
 		Version: "0.1.0", Hash: fmt.Sprintf("%064x", o.Seed*7919+12345), Latest: "2026-05-04T10:00:00.000Z",
 	}
+	if o.Lot != "" {
+		s.Lot.Name = o.Lot
+	}
 	if o.Spots {
 		s.SortedBy, s.TestCurrent, s.TestBasis, s.IdleCurrent = fit.KeyVgsth, 0.01, "spot list", math.NaN()
 		s.Part.IdleCurrent, s.Part.TestCurrent = record.Num{}, record.Num{}
@@ -95,7 +100,7 @@ func Lot(o Options) report.Sheet {
 	}
 	width := len(fmt.Sprint(o.Devices))
 	for i := range o.Devices {
-		vt, beta := 3.02+0.065*rng.NormFloat64(), 3.8*(1+0.03*rng.NormFloat64())
+		vt, beta := 3.02+o.Shift+0.065*rng.NormFloat64(), 3.8*(1+0.03*rng.NormFloat64())
 		reasons := []lot.Reason{}
 		name := fmt.Sprintf("D%0*d", width, i+1)
 		if !o.Clean {
@@ -145,6 +150,11 @@ func device(o Options, s *report.Sheet, i int, name string, state fit.State, vt,
 		}
 		r.Vgsth = value(gateFor(test, vt, beta), u, 4)
 		r.VgsIdle = value(gateFor(idle, vt, beta), u*1.4, 4)
+		for _, i := range fit.LevelCurrents {
+			if i <= current(4, vt, beta) && i <= 1.2 {
+				r.Levels = append(r.Levels, fit.Level{I: i, Vg: sign * gateFor(i, vt, beta), U: u})
+			}
+		}
 		r.Vt = value(vt+0.003, u*2, 9)
 		r.Method = "sqrt"
 		r.Beta = fit.Quantity{Value: beta, U: beta * 0.004, UBetween: beta * 0.006, UAbsolute: beta * 0.012, N: 9}
