@@ -26,15 +26,18 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 	if p.opt.Aim == Worst {
 		g.tighten(share(0.35))
 	}
+	var numbered string
+	a.most, numbered = g.number(p.mostGroups(g), g.by(share(0.4)))
 	low := p.simpleBound(g)
-	a.proof = low.proof
 	if g.total > low.total && len(g.sets) > 0 {
 		g.priced(a, &low, len(g.sets), share(0.7), share(0.97))
 	}
 	a.sets, _ = g.keep()
-	a.most = p.mostGroups(g)
 	a.total = min(low.total, g.total)
 	a.proof = low.proof
+	if numbered != "" {
+		a.proof = numbered + "; " + a.proof
+	}
 	a.worst = p.worstBound(g)
 	if a.total == g.total && len(g.sets) == a.most && (p.opt.Aim != Worst || a.worst == g.worst()) {
 		a.kind = Optimal
@@ -304,7 +307,7 @@ func (g *groups) priced(a *answer, low *simple, z int, pricesEnd, end time.Time)
 			break
 		}
 	}
-	g.round(m, low.total, g.by(end))
+	g.round(m, low.total, z, g.by(end))
 }
 
 func bytesOf(items []int32) []byte {
@@ -349,12 +352,12 @@ func (g *groups) nearColumns(add func(column), each int) {
 }
 
 // round makes whole sets of the shares of the linear programme, in several ways,
-// and keeps the best answer.
-func (g *groups) round(m *master, low int64, over func() bool) {
+// and keeps the best answer; it ends with most sets of total low.
+func (g *groups) round(m *master, low int64, most int, over func() bool) {
 	cols, x := m.shares()
 	bestSets, bestTotal := g.keep()
 	start := slices.Clone(bestSets)
-	for try := 0; try < 24 && !over() && bestTotal > low; try++ {
+	for try := 0; try < 24 && !over() && (len(bestSets) < most || bestTotal > low && low > math.MinInt64); try++ {
 		if try%4 == 3 { // from the best so far, patiently
 			g.take(bestSets)
 			g.improve(60, over)

@@ -25,6 +25,7 @@ type master struct {
 	unitB []bool    // by row
 	big   float64   // cost of a missing set, and of an item that must not be left over
 	spare bool      // items may be left over
+	upTo  bool      // z is the greatest number of sets, not the number
 }
 
 func newMaster(g *groups, z int, big float64) *master {
@@ -57,7 +58,7 @@ func (m *master) add(c column) {
 
 // unitCost is the cost of the unit column of a row.
 func (m *master) unitCost(r int) float64 {
-	if r == m.g.n || !m.spare {
+	if r == m.g.n && !m.upTo || !m.spare {
 		return m.big
 	}
 	return 0
@@ -108,7 +109,11 @@ func (m *master) solve(stop func() bool) {
 				}
 			}
 		}
-		for r := range m.g.n {
+		units := m.g.n
+		if m.upTo {
+			units++
+		}
+		for r := range units {
 			if !m.unitB[r] {
 				if d := m.unitCost(r) - m.pi[r]; d < least {
 					enter, least, unit = r, d, true

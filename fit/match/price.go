@@ -238,3 +238,57 @@ func (s *pricing) extend(cands []candidate, d, w int64, size, pch int) {
 		s.set = s.set[:len(s.set)-1]
 	}
 }
+
+// all gives every set that may be made, nil where there are more than most.
+func (g *groups) all(most int, over func() bool) []column {
+	var cols []column
+	set := make([]int, 0, g.k)
+	steps := 0
+	var grow func(cands []candidate, d int64, size, pch int) bool
+	grow = func(cands []candidate, d int64, size, pch int) bool {
+		if steps++; steps&0xfff == 0 && over() {
+			return false
+		}
+		for x, c := range cands {
+			if size+g.size[c.i] > g.k || g.needP >= 0 && pch+g.pch[c.i] > g.needP {
+				continue
+			}
+			e := max(d, c.d)
+			set = append(set, c.i)
+			if size+g.size[c.i] == g.k {
+				if g.needP < 0 || pch+g.pch[c.i] == g.needP {
+					cols = append(cols, column{toInt32(set), e})
+				}
+			} else {
+				var further []candidate
+				for _, f := range cands[x+1:] {
+					if fd := max(f.d, g.dist(c.i, f.i)); fd <= g.cap {
+						further = append(further, candidate{f.i, 0, fd})
+					}
+				}
+				if !grow(further, e, size+g.size[c.i], pch+g.pch[c.i]) {
+					return false
+				}
+			}
+			set = set[:len(set)-1]
+			if len(cols) > most {
+				return false
+			}
+		}
+		return true
+	}
+	var cands []candidate
+	for i := range g.n {
+		var d int64
+		if g.size[i] > 1 {
+			d = g.dist(i, i)
+		}
+		if d <= g.cap {
+			cands = append(cands, candidate{i, 0, d})
+		}
+	}
+	if !grow(cands, 0, 0, 0) {
+		return nil
+	}
+	return cols
+}
