@@ -33,7 +33,7 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 		g.priced(a, &low, len(g.sets), share(0.7), share(0.97))
 	}
 	a.sets, _ = g.keep()
-	a.total = min(low.total, g.total)
+	a.total = low.total
 	a.proof = low.proof
 	if numbered != "" {
 		a.proof = numbered + "; " + a.proof
