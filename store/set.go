@@ -10,7 +10,7 @@ import (
 	"gatesill/store/record"
 )
 
-const setColumns = `number, name, state, unit, reason, idle_current_a, source_resistor_ohm, criteria, spread_v`
+const setColumns = `number, name, state, unit, reason, at_a, source_resistor_ohm, criteria, spread_v`
 
 var setKind = kind{table: "device_set", what: "set", columns: strings.Split(setColumns, ", ")}
 

@@ -136,7 +136,7 @@ func TestSetsBySQL(t *testing.T) {
 	}
 	again := "INSERT INTO set_member SELECT (SELECT id FROM device_set WHERE number = 2), 3, device_id, readings FROM set_member WHERE device_id = '" + ds[0].ID + "'"
 	refuse(again, "in a set already")
-	for _, column := range []string{"idle_current_a = 1", "source_resistor_ohm = 1", "criteria = '[]'", "spread_v = 0", "created_by = ''"} {
+	for _, column := range []string{"at_a = 1", "source_resistor_ohm = 1", "criteria = '[]'", "spread_v = 0", "created_by = ''"} {
 		refuse("UPDATE device_set SET "+column, "never changed")
 	}
 	refuse("UPDATE set_member SET readings = '{}'", "never changed")

@@ -11,7 +11,7 @@ CREATE TABLE device_set (
 	state               TEXT NOT NULL CHECK (state IN ('reserved', 'used', 'released')),
 	unit                TEXT NOT NULL,                          -- what it is for, or was built into
 	reason              TEXT NOT NULL,                          -- of the state
-	idle_current_a      REAL CHECK (idle_current_a > 0),        -- of one device, at which it was matched
+	at_a                REAL CHECK (at_a > 0),                  -- current of one device at which it was matched
 	source_resistor_ohm REAL CHECK (source_resistor_ohm >= 0),  -- of each device
 	criteria            TEXT NOT NULL CHECK (json_valid(criteria)), -- [{"quantity": , "within": , "weight": }], the first leads
 	spread_v            REAL CHECK (spread_v >= 0),             -- greatest less least of the first
@@ -51,7 +51,7 @@ CREATE TRIGGER set_member_stays BEFORE DELETE ON set_member
 BEGIN SELECT RAISE(ABORT, 'what is in a set is never deleted'); END;
 
 CREATE TRIGGER device_set_keeps_its_match
-BEFORE UPDATE OF id, idle_current_a, source_resistor_ohm, criteria, spread_v, created_at, created_by ON device_set
+BEFORE UPDATE OF id, at_a, source_resistor_ohm, criteria, spread_v, created_at, created_by ON device_set
 BEGIN SELECT RAISE(ABORT, 'what a set was matched by is never changed'); END;
 
 CREATE TRIGGER device_set_stays_released BEFORE UPDATE OF state ON device_set

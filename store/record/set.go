@@ -23,7 +23,7 @@ type Set struct {
 	Reason string // of its state
 
 	// What it was matched by, and what its devices had then.
-	At             Num         // A, idle current of one device
+	At             Num         // A, current of one device at which its first criterion was read: the idle current, or that of V_GS(th)
 	SourceResistor Num         // ohm, of each device
 	By             []Criterion // the first leads
 	Spread         Num         // V, greatest less least of the first criterion
@@ -79,7 +79,7 @@ func (s *Set) Validate() error {
 		seen[m.DeviceID] = true
 	}
 	if x, ok := s.At.Get(); ok && x <= 0 {
-		return fmt.Errorf("%s: idle current is %g, must be above 0: %w", noun, x, ErrInvalid)
+		return fmt.Errorf("%s: current is %g, must be above 0: %w", noun, x, ErrInvalid)
 	}
 	return nil
 }
