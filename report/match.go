@@ -19,8 +19,10 @@ type Matched struct {
 	Gm      float64       // S, given for devices whose curves tell none; NaN: none was given
 	Notes   []fit.Warning // besides those of the matching
 	Cut     bool          // interrupted: better sets may be had
-	Vds     float64       // V, for the dissipation; NaN: not known
-	VdsFrom string        // where it comes from, in words
+	// SourceOhms is the resistor in each source, ohm; 0: none.
+	SourceOhms float64
+	Vds        float64 // V, for the dissipation; NaN: not known
+	VdsFrom    string  // where it comes from, in words
 }
 
 // Partners is the stock as partners for one device, ready to be laid out.
@@ -158,4 +160,9 @@ func SetStateWords(s *record.Set) string {
 // SetWords names a set with what became of it: "S4 (used in amplifier 7)".
 func SetWords(s *record.Set) string {
 	return strings.TrimSpace(Clean(s.Name) + " (" + SetStateWords(s) + ")")
+}
+
+// warnings are those of the matching and of what it was made from.
+func (m *Matched) warnings() []fit.Warning {
+	return append(append([]fit.Warning{}, m.Notes...), m.Warnings...)
 }
