@@ -158,10 +158,10 @@ func (m *Matched) valueWriter() func(match.Placed) string {
 }
 
 // valueDecimals is how many decimals a gate voltage gets: those of the display
-// step where one is known and the u does not show more, at least to the millivolt.
+// where it was read off one, else what its u leaves, at least to the millivolt.
 func valueDecimals(v, u, step float64) int {
-	if step > 0 && isNumber(step) && wholeSteps(step) <= 6 {
-		return wholeSteps(step)
+	if x := v / step; step > 0 && isNumber(x) && math.Abs(x-math.Round(x)) < 0.01 {
+		return min(wholeSteps(step), 6)
 	}
 	if d, ok := DecimalsFor(u); ok {
 		return min(max(d-1, 3), 6)
