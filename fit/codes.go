@@ -59,7 +59,6 @@ const (
 	CodeOutsideLimits      = "outside-limits"       // outside the data sheet's limits
 	CodeCommonUnknown      = "common-error-unknown" // what the bench adds to the difference of two lots
 	CodeOtherSession       = "other-session"        // devices matched across sessions
-	CodeBelowResolution    = "below-resolution"     // a tolerance that readings cannot tell
 
 	// Of the bench, by devices put in again.
 	CodeTooFewRepeats   = "too-few-repeats"
@@ -269,9 +268,6 @@ var Codes = []CodeInfo{
 	{CodeOtherSession,
 		"Devices are matched that were measured in different sessions: what the devices of a session share, such as the offsets of the meters and the temperature, enters the difference between devices of two sessions.",
 		"Measure them in one session, or some parts again with the others, and compare."},
-	{CodeBelowResolution,
-		"A tolerance is narrower than the readings can tell two devices apart.",
-		"Ask for no less than the display step and twice the square root of two times the standard uncertainty of a device, or read with more digits."},
 	{CodeExcluded,
 		"The device was left out of every statistic by hand.",
 		"See why with gatesill device show; gatesill device include lets it count again."},

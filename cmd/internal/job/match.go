@@ -210,6 +210,8 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 		return matchFailure(st, err)
 	}
 	m.Matching, m.Cut = *found, ctx.Err() != nil
+	// What there is to say of several sessions stands in the notes, with its size.
+	m.Warnings = slices.DeleteFunc(m.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown })
 	if !m.Cut {
 		m.More = more(ctx, st, found)
 		if m.Locked, err = env.lock(ctx, st, &m, rq); err != nil {

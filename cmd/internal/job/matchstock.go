@@ -284,44 +284,17 @@ func (st *stock) doubts() {
 		if len(metersSeen) > 1 {
 			text += ", nor with the same meters"
 		}
-		text += ": what the devices of a session share (offsets of the meters, temperature) enters the difference between devices of two, and alike does not hold it"
-		if len(between) > 0 {
-			text += "; a reading is uncertain by " + report.FormatTwoDigits(median(between), "V") + " between sessions"
-		} else {
+		text += ": what the devices of a session share (offsets of the meters, temperature) enters the difference between devices of two"
+		switch {
+		case len(between) == 0:
 			text += "; by how much is not known"
+		case len(lots) > 1:
+			text += ", by about " + report.FormatTwoDigits(median(between), "V") + " each, which alike counts between devices of two lots"
+		default:
+			text += ", by about " + report.FormatTwoDigits(median(between), "V") + " each, which alike does not count"
 		}
 		st.notes = append(st.notes, fit.Warning{Code: fit.CodeOtherSession, Text: text})
 	}
-	if w, ok := st.tooNarrow(); ok {
-		st.notes = append(st.notes, w)
-	}
-}
-
-// tooNarrow warns of a tolerance below what the readings tell apart: the display
-// step, and 2·√2·u of the difference of two devices.
-func (st *stock) tooNarrow() (fit.Warning, bool) {
-	c := st.opt.By[0]
-	if !(c.Within > 0) {
-		return fit.Warning{}, false
-	}
-	step := 0.0
-	var us []float64
-	for i := range st.members {
-		m := &st.members[i]
-		step = max(step, m.Step)
-		if q := m.Result.At(c.Key); q.Ok() && q.U > 0 {
-			us = append(us, q.U)
-		}
-	}
-	tell, what := step, "the display step"
-	if u := median(us); 2*math.Sqrt2*u > step {
-		tell, what = 2*math.Sqrt2*u, "2·√2 standard uncertainties of a device"
-	}
-	if !(c.Within < tell*(1-1e-9)) {
-		return fit.Warning{}, false
-	}
-	return fit.Warning{Code: fit.CodeBelowResolution, Text: fmt.Sprintf("within %s is less than the readings tell apart: %s, %s",
-		report.FormatGiven(c.Within, "V"), report.FormatTwoDigits(tell, "V"), what)}, true
 }
 
 // enough refuses a stock from which not even one set can be given, with what the
