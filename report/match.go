@@ -15,6 +15,7 @@ type Matched struct {
 	match.Matching
 	Members []match.Member     // as they were handed to the matching
 	Locked  map[int]record.Set // the sets that were stored, by their number in the matching
+	Near    []match.Set        // left-over devices that nearly go together, the nearest first
 	More    []match.More
 	Gm      float64       // S, given for devices whose curves tell none; NaN: none was given
 	Notes   []fit.Warning // besides those of the matching

@@ -143,7 +143,12 @@ func (m *Matched) setDocOf(s *match.Set) setDoc {
 
 // MatchJSON writes what `match --json` gives.
 func MatchJSON(w io.Writer, m Matched) error {
-	sets, left, why, trade, more, lots := rows{}, []string{}, rows{}, rows{}, rows{}, []string{}
+	sets, left, why, trade, more, lots, near := rows{}, []string{}, rows{}, rows{}, rows{}, []string{}, rows{}
+	for i := range m.Near {
+		d := m.setDocOf(&m.Near[i])
+		d.ID, d.Name = "", ""
+		near = append(near, d)
+	}
 	for i := range m.Sets {
 		sets = append(sets, m.setDocOf(&m.Sets[i]))
 	}
@@ -151,7 +156,7 @@ func MatchJSON(w io.Writer, m Matched) error {
 		left = append(left, l.Name)
 		why = append(why, leftDoc{l.Name, l.Lot, l.Out, optional(l.Locked), l.Why})
 	}
-	for _, t := range m.TradeOff {
+	for _, t := range m.tradeRows() {
 		trade = append(trade, tradeDoc{number(t.Within), t.Sets, t.Exact, number(t.Total), number(t.Mean), t.Left, number(t.Imbalance)})
 	}
 	for _, x := range m.More {
@@ -164,7 +169,7 @@ func MatchJSON(w io.Writer, m Matched) error {
 	return writeObject(w, member{"schema", Schema}, member{"lots", lots}, member{"at_A", number(m.at())},
 		member{"size", m.Size}, member{"aim", string(m.Aim)}, member{"by", criterionDocs(m.By)}, member{"currents_A", numbersDoc(m.Currents)},
 		member{"complementary", m.Complementary}, member{"source_resistor_ohm", number(m.SourceOhms)}, member{"vds_V", number(m.Vds)},
-		member{"sets", sets}, member{"left_over", left}, member{"left_over_why", why}, member{"total_V", number(m.Total)}, member{"worst_V", number(m.Worst)},
+		member{"sets", sets}, member{"left_over", left}, member{"left_over_why", why}, member{"near_misses", near}, member{"total_V", number(m.Total)}, member{"worst_V", number(m.Worst)},
 		member{"bound", boundDoc{optional(b.Kind), number(b.Total), number(b.Worst), b.Sets, number(b.Gap), optional(b.Proof)}},
 		member{"trade_off", trade}, member{"more", more}, member{"interrupted", m.Cut}, member{"text", m.Text}, member{"warnings", append([]fit.Warning{}, m.warnings()...)})
 }

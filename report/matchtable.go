@@ -4,8 +4,10 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 
+	"gatesill/fit"
 	"gatesill/fit/lot"
 	"gatesill/fit/match"
 )
@@ -16,6 +18,9 @@ import (
 func MatchTable(w io.Writer, m Matched, style Style) error {
 	p := &printer{w: w}
 	wrapped(p, "", "", m.MatchLine(), style.Width)
+	if text := m.toleranceLine(); text != "" {
+		wrapped(p, "", "", text, style.Width)
+	}
 	if len(m.Sets) == 0 {
 		p.line("")
 		wrapped(p, "", "", "No set: "+Clean(Sentence(m.Text)), style.Width)
@@ -25,18 +30,22 @@ func MatchTable(w io.Writer, m Matched, style Style) error {
 		p.line("")
 		wrapped(p, "", "  ", m.setsNote(), style.Width)
 		if basis := m.sharingBasis(); basis != "" {
-			wrapped(p, "", "  ", Clean(Sentence(basis)), style.Width)
+			wrapped(p, "", "  ", "Currents: "+Clean(basis)+".", style.Width)
 		}
 		p.line("")
 		wrapped(p, "", "  ", m.boundWords(), style.Width)
 		inPackages(p, &m, style)
-		repairs(p, &m, style)
 	}
+	repairs(p, &m, style)
 	leftOver(p, &m, style)
 	if len(m.TradeOff) > 1 {
 		p.line("")
 		p.line("%s", style.paint("Sets by tolerance", bold))
-		p.grid(tradeOffGrid(&m, style))
+		claimed := p.tradeOff(&m, style)
+		p.line("")
+		if claimed {
+			wrapped(p, "", "  ", "imbalance: of two devices that far apart, with the lot's median transconductance.", style.Width)
+		}
 	}
 	for _, more := range m.More {
 		wrapped(p, "", "  ", Clean(Sentence(more.Text)), style.Width)
@@ -181,11 +190,7 @@ func spreadColumn(m *Matched, c int, crit match.Criterion) column {
 	if isGain(crit.Key) {
 		return column{head: "gain spread", unit: "%", cells: percents(x), right: true}
 	}
-	cells := make([]string, len(x))
-	for i, v := range x {
-		cells[i] = spreadText(v)
-	}
-	return column{head: "spread", unit: "mV", cells: cells, right: true}
+	return column{head: "spread", unit: "mV", cells: spreadCells(x), right: true}
 }
 
 // spreadText writes a difference of gate voltages in millivolts, to a tenth where
@@ -236,8 +241,11 @@ func sizeColumn(head, unit string, x []float64) column {
 // setsNote explains the columns.
 func (m *Matched) setsNote() string {
 	text := "spread: greatest less least."
+	if m.inSteps() {
+		text = "The gate voltages were read in steps of " + FormatGiven(m.Step, "V") + ", which is all that can be claimed. spread: greatest less least."
+	}
 	if m.Complementary {
-		text = "spread: greatest less least, by magnitude; each set has as many n-channel as p-channel devices."
+		text += " Voltages are compared by magnitude; each set has as many n-channel as p-channel devices."
 	}
 	for _, s := range m.Sets {
 		if isNumber(s.Sharing.Imbalance) {
@@ -251,6 +259,22 @@ func (m *Matched) setsNote() string {
 	return text + " alike: no two differ by more than 2·√2 standard uncertainties."
 }
 
+// inSteps reports whether the values are readings of a display, not read between
+// its steps.
+func (m *Matched) inSteps() bool {
+	if !(m.Step > 0) || m.By[0].Key == match.KeyCurve {
+		return false
+	}
+	for _, s := range m.Sets {
+		for _, d := range s.Devices {
+			if x := d.Values[0] / m.Step; !(math.Abs(x-math.Round(x)) < 0.01) {
+				return false
+			}
+		}
+	}
+	return true
+}
+
 // resistorWords is the source resistor that the currents go with.
 func (m *Matched) resistorWords() string {
 	if m.SourceOhms > 0 {
@@ -259,43 +283,58 @@ func (m *Matched) resistorWords() string {
 	return " without source resistors"
 }
 
-// sharingBasis is what the currents rest on, or why there are none.
+// sharingBasis is what the currents rest on; where there are none, and no warning
+// tells it, why.
 func (m *Matched) sharingBasis() string {
 	basis := ""
 	for _, s := range m.Sets {
-		if s.Sharing.Basis != "" && (basis == "" || isNumber(s.Sharing.Imbalance)) {
-			basis = s.Sharing.Basis
-			if isNumber(s.Sharing.Imbalance) {
-				break
+		if isNumber(s.Sharing.Imbalance) {
+			basis = strings.TrimSuffix(s.Sharing.Basis, ".")
+			if isNumber(m.Gm) {
+				basis += "; g_m " + FormatGiven(m.Gm, "S") + " as given, where the readings tell none"
 			}
+			return basis
 		}
+		basis = s.Sharing.Basis
 	}
-	if isNumber(m.Gm) {
-		return strings.TrimSuffix(basis, ".") + orNothing("; ", "g_m of "+FormatGiven(m.Gm, "S")+" as given, where readings tell none")
+	if slices.ContainsFunc(m.Matching.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeSpotOnly }) {
+		return ""
 	}
-	return basis
+	return strings.TrimSuffix(basis, ".")
 }
 
-// boundWords say how good the sets are and how far from the best possible.
-func (m *Matched) boundWords() string {
-	var words []string
-	if m.Text != "" {
-		words = append(words, Clean(Sentence(m.Text)))
-	} else {
-		words = append(words, fmt.Sprintf("%d %s, sum of spreads %s mV.", len(m.Sets), sizeWords(m.Size), spreadText(m.Total)))
-	}
-	b := m.Bound
-	switch {
-	case b.Kind == match.Optimal:
-		words = append(words, orNothing("No better answer exists: ", Clean(Sentence(b.Proof))))
-	case b.Kind == match.LowerBound && isNumber(b.Total):
-		text := "Lower bound: no answer with as many sets has a sum below " + spreadText(b.Total) + " mV"
-		if isNumber(b.Gap) {
-			text += fmt.Sprintf(", %s below this one", percents([]float64{b.Gap / (1 + b.Gap)})[0]+" %")
+// perVolt is by how much the currents of two devices differ for a volt of gate
+// voltage, A/V, by the median transconductance and the source resistors; NaN: not
+// known.
+func (m *Matched) perVolt() float64 {
+	for _, t := range m.TradeOff {
+		if isNumber(t.Imbalance) && t.Within > 0 {
+			return t.Imbalance / t.Within
 		}
-		words = append(words, text+orNothing(": ", Clean(Sentence(b.Proof))))
 	}
-	return strings.Join(words, " ")
+	return math.NaN()
+}
+
+// toleranceLine says what the tolerance means in milliamperes.
+func (m *Matched) toleranceLine() string {
+	within := m.By[0].Within
+	i := within * m.perVolt()
+	if !(within > 0) || !isNumber(i) {
+		return ""
+	}
+	return fmt.Sprintf("Two devices %s apart differ by about %s on one gate line, %s %% of %s.", FormatGiven(within, "V"), FormatTwoDigits(i, "A"), percents([]float64{i / m.At})[0], FormatGiven(m.At, "A"))
+}
+
+// boundWords say how good the sets are and what that rests on.
+func (m *Matched) boundWords() string {
+	text := Clean(Sentence(m.Text))
+	if m.Bound.Kind == match.LowerBound && m.Bound.Gap > 0 && m.Total > 0 {
+		text += fmt.Sprintf(" Its sum lies %s %% above that bound.", percents([]float64{m.Bound.Gap})[0])
+	}
+	if m.Bound.Proof != "" {
+		text += " Proof: " + Clean(strings.TrimSuffix(m.Bound.Proof, ".")) + "."
+	}
+	return text
 }
 
 // inPackages says what the two sides of a package differ by, which no choice of
@@ -315,33 +354,6 @@ func inPackages(p *printer, m *Matched, style Style) {
 			}
 			wrapped(p, "  ", "    ", text+".", style.Width)
 		}
-	}
-}
-
-// shownRepairs is how many repairs the terminal lists; --json has all.
-const shownRepairs = 6
-
-// repairs lists the sets that would need something to share equally, the worst
-// first.
-func repairs(p *printer, m *Matched, style Style) {
-	var list []*match.Set
-	for i := range m.Sets {
-		if s := &m.Sets[i]; s.Repair.Text != "" && (!s.Within || !s.Alike) {
-			list = append(list, s)
-		}
-	}
-	if len(list) == 0 {
-		return
-	}
-	p.line("")
-	p.line("%s", style.paint("To share equally all the same", bold))
-	for k := range list {
-		if k == shownRepairs {
-			p.line("  and %d more (--json)", len(list)-k)
-			return
-		}
-		s := list[len(list)-1-k] // the best come first in a matching
-		wrapped(p, "  set "+m.setLabel(s.Number)+": ", "    ", Clean(Sentence(s.Repair.Text)), style.Width)
 	}
 }
 
@@ -374,27 +386,18 @@ func leftOver(p *printer, m *Matched, style Style) {
 	}
 }
 
-func tradeOffGrid(m *Matched, style Style) grid {
-	n := len(m.TradeOff)
-	within, sets, total, mean, left, exact := make([]string, n), make([]string, n), make([]string, n), make([]string, n), make([]string, n), make([]string, n)
-	imbalance := make([]float64, n)
-	claimed := false
-	for i, t := range m.TradeOff {
-		within[i], sets[i], left[i] = spreadText(t.Within), itoa(t.Sets), itoa(t.Left)
-		total[i], mean[i] = spreadText(t.Total), spreadText(t.Mean)
-		if !t.Exact {
-			exact[i] = "or more"
+// spreadCells is a column of differences in millivolts, all with a tenth where one
+// needs it.
+func spreadCells(x []float64) []string {
+	tenths := false
+	for _, v := range x {
+		tenths = tenths || isNumber(v) && strings.Contains(spreadText(v), ".")
+	}
+	cells := make([]string, len(x))
+	for i, v := range x {
+		if cells[i] = spreadText(v); tenths && isNumber(v) {
+			cells[i] = fixed(v*1e3, 1)
 		}
-		imbalance[i] = t.Imbalance
-		claimed = claimed || isNumber(t.Imbalance)
 	}
-	g := grid{style: style, cols: []column{
-		{head: "within", unit: "mV", cells: within, right: true}, {head: "sets", cells: sets, right: true}, {head: "", cells: exact, rank: 1},
-		{head: "sum", unit: "mV", cells: total, right: true}, {head: "mean", unit: "mV", cells: mean, right: true, rank: 2},
-		{head: "left over", cells: left, right: true},
-	}}
-	if claimed {
-		g.cols = append(g.cols, sizeColumn("apart by that", "A", imbalance))
-	}
-	return g
+	return cells
 }

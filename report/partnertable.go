@@ -3,6 +3,7 @@ package report
 import (
 	"fmt"
 	"io"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/lot"
@@ -56,7 +57,7 @@ func PartnersTable(w io.Writer, x Partners, style Style) error {
 		p.line("")
 		wrapped(p, "", "  ", "apart: by how much the two differ. imbalance: between the two on one gate line. alike: they differ by no more than 2·√2 standard uncertainties.", style.Width)
 		if b := given[0].Sharing.Basis; b != "" {
-			wrapped(p, "", "  ", Clean(Sentence(b)), style.Width)
+			wrapped(p, "", "  ", "Currents: "+Clean(strings.TrimSuffix(b, "."))+".", style.Width)
 		}
 	}
 	if len(refused) > 0 {
@@ -134,11 +135,7 @@ func partnerGrid(x *Partners, list []match.Partner, style Style) grid {
 			g.cols = append(g.cols, column{head: "gain apart", unit: "%", cells: percents(v), right: true})
 			continue
 		}
-		cells := make([]string, n)
-		for i := range v {
-			cells[i] = spreadText(v[i])
-		}
-		g.cols = append(g.cols, column{head: "apart", unit: "mV", cells: cells, right: true})
+		g.cols = append(g.cols, column{head: "apart", unit: "mV", cells: spreadCells(v), right: true})
 	}
 	if claimed {
 		g.cols = append(g.cols, sizeColumn("imbalance", "A", imbalance), column{head: "of idle", unit: "%", cells: percents(share), right: true})

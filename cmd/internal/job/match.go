@@ -213,7 +213,7 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 	// What there is to say of several sessions stands in the notes, with its size.
 	m.Warnings = slices.DeleteFunc(m.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown })
 	if !m.Cut {
-		m.More = more(ctx, st, found)
+		m.Near, m.More = near(ctx, st, found), more(ctx, st, found)
 		if m.Locked, err = env.lock(ctx, st, &m, rq); err != nil {
 			return err
 		}
@@ -275,6 +275,40 @@ func matchFailure(st *stock, err error) error {
 	return Usage("gatesill help match", "%w", err)
 }
 
+// nearly is how many tolerances left-over devices may be apart for a repair to be
+// worth a word, and nearTime how long they are searched for such sets (judgement).
+const (
+	nearly   = 4
+	nearTime = 2 * time.Second
+)
+
+// near matches the left-over devices among themselves, without the tolerances: what
+// a trimmed gate or a source resistor would put right.
+func near(ctx context.Context, st *stock, found *match.Matching) []match.Set {
+	if found.Aim != match.Most {
+		return nil
+	}
+	members := slices.Clone(st.members)
+	free := 0
+	for i := range members {
+		if !slices.ContainsFunc(found.LeftOver, func(l match.LeftOver) bool { return l.Member == i && !l.Out }) {
+			members[i].Out = "in a set"
+			continue
+		}
+		free++
+	}
+	if free < found.Size {
+		return nil
+	}
+	opt := st.opt
+	opt.By, opt.Aim, opt.NoTradeOff, opt.TimeLimit = []match.Criterion{{Key: st.opt.By[0].Key}}, match.Total, true, nearTime
+	rest, err := match.Match(ctx, members, opt)
+	if err != nil {
+		return nil // a word beside the sets, which stand without it
+	}
+	return slices.DeleteFunc(rest.Sets, func(s match.Set) bool { return s.Spread > nearly*st.opt.By[0].Within })
+}
+
 // moreRuns is how many draws tell what more devices would give, and moreTime how
 // long that may take: it is a word beside the sets.
 const (
@@ -290,7 +324,7 @@ func more(ctx context.Context, st *stock, found *match.Matching) []match.More {
 	}
 	var ks []int
 	for _, share := range []float64{0.1, 0.25, 0.5} {
-		if k := roundUp(share * float64(found.Offered)); !slices.Contains(ks, k) {
+		if k := roundUp(max(2, share*float64(found.Offered))); !slices.Contains(ks, k) {
 			ks = append(ks, k)
 		}
 	}

@@ -62,9 +62,7 @@ func partnerFor(ctx context.Context, env *Env, lots []string, rq MatchRequest) e
 		}
 		st.sheets, st.notes = append(st.sheets, &s), append(st.notes, notes...)
 	}
-	if err := env.gather(ctx, st, rq); err != nil {
-		return err
-	}
+	st.gather(rq)
 	st.dissipation(rq)
 	st.doubts()
 	me := slices.Index(st.ids, d.ID)

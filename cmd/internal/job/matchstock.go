@@ -11,7 +11,6 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/match"
 	"gatesill/report"
-	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -50,9 +49,7 @@ func (e *Env) stockOf(ctx context.Context, lots []string, rq MatchRequest) (*sto
 		}
 		st.sheets, st.notes = append(st.sheets, &s), append(st.notes, notes...)
 	}
-	if err := e.gather(ctx, st, rq); err != nil {
-		return nil, err
-	}
+	st.gather(rq)
 	st.dissipation(rq)
 	st.doubts()
 	return st, nil
@@ -146,34 +143,17 @@ func (st *stock) joins(s *report.Sheet) (notes []fit.Warning, why string, err er
 }
 
 // gather makes members of the devices of all lots.
-func (e *Env) gather(ctx context.Context, st *stock, rq MatchRequest) error {
-	in := map[string]string{}
-	err := e.view(ctx, func(tx *store.Tx) error {
-		for _, s := range st.sheets {
-			list, err := tx.Sets(s.Lot.ID)
-			if err != nil {
-				return err
-			}
-			for i := range list {
-				for _, m := range list[i].Members {
-					if list[i].State != record.Released {
-						in[m.DeviceID] = report.SetWords(&list[i])
-					}
-				}
-			}
-		}
-		return nil
-	})
-	if err != nil {
-		return err
-	}
+func (st *stock) gather(rq MatchRequest) {
 	for _, s := range st.sheets {
-		digits := lastDigitsOf(s)
+		digits, in := lastDigitsOf(s), s.InSet()
 		for i := range s.Devices {
 			d := &s.Devices[i]
 			m := match.Member{
 				Name: d.Name, Lot: s.Lot.Name, Package: d.Package, Side: d.Side, DateCode: first(d.DateCode, s.Lot.DateCode),
-				PChannel: s.Part.Channel == record.PChannel, Locked: in[d.ID], Out: keptBack(d), Step: displayStep(d, digits), Result: d.Result,
+				PChannel: s.Part.Channel == record.PChannel, Out: keptBack(d), Step: displayStep(d, digits), Result: d.Result,
+			}
+			if set := in[d.ID]; set != nil {
+				m.Locked = report.SetWords(set)
 			}
 			if g, ok := rq.Gm.Get(); ok && !m.Result.GmIdle.Ok() {
 				m.Result.GmIdle = fit.None()
@@ -182,7 +162,6 @@ func (e *Env) gather(ctx context.Context, st *stock, rq MatchRequest) error {
 			st.members, st.ids = append(st.members, m), append(st.ids, d.ID)
 		}
 	}
-	return nil
 }
 
 // unsettled are the warnings by which the value of a device may be that of the
