@@ -62,12 +62,12 @@ func Ohms(r float64) string {
 	for _, p := range []struct {
 		from float64
 		unit string
-	}{{1e6, "Mohm"}, {1e3, "kohm"}} {
+	}{{1e6, "MΩ"}, {1e3, "kΩ"}} {
 		if r >= p.from*(1-1e-9) {
 			return strconv.FormatFloat(r/p.from, 'g', 4, 64) + " " + p.unit
 		}
 	}
-	return strconv.FormatFloat(r, 'g', 4, 64) + " ohm"
+	return strconv.FormatFloat(r, 'g', 4, 64) + " Ω"
 }
 
 // Drawing is the circuit in lines of text, its values with it.

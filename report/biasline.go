@@ -1,0 +1,146 @@
+package report
+
+import (
+	"errors"
+	"fmt"
+	"math"
+	"strings"
+
+	"gatesill/fit/bias"
+)
+
+// lineTable writes devices on one gate line: their gate voltage, and what each draws
+// cold, warmed up, and without the source resistors.
+func lineTable(p *printer, b Bias, l *bias.Line, style Style) {
+	p.line("%s", style.paint(fmt.Sprintf("On one gate line: %s", namesWords(l.Names, len(l.Names))), bold))
+	fact(p, "total", fmt.Sprintf("%s, %s", FormatGiven(l.LineOptions.Total, "A"), sourceWords(l.Source)), style)
+	stateFact(p, b, "cold", fmt.Sprintf("at %s", FormatGiven(math.Round(l.Temp*10)/10, "°C")), l, &l.Cold, style)
+	hot := l.Hot.Err != nil || l.Hot.Devices != nil
+	if hot {
+		sink := l.Sink
+		if !isNumber(sink) {
+			sink = l.Temp
+		}
+		stateFact(p, b, "warmed up", fmt.Sprintf("over a heat sink of %s, %s K/W to each, %s, gate set again", FormatGiven(math.Round(sink*10)/10, "°C"), fmt.Sprintf("%.3g", l.Rth), slopeWords(l.Tempco)), l, &l.Hot, style)
+		if l.Kept.Err == nil && l.Kept.Devices != nil {
+			fact(p, "gate kept", fmt.Sprintf("left at %s it would draw %s when warm", gateWords(l.Kept.Gate), bias.AmpWords(l.Kept.Total)), style)
+		} else if l.Kept.Err != nil && l.Cold.Err == nil {
+			fact(p, "gate kept", fmt.Sprintf("left at %s: %s", gateWords(l.Cold.Gate), stateTrouble(l, l.Kept.Err)), style)
+		}
+	} else {
+		var missing []string
+		for _, m := range []struct {
+			x    float64
+			flag string
+		}{{l.VDS, "--vds"}, {l.Rth, "--rth"}, {l.Tempco, "--tempco"}} {
+			if !isNumber(m.x) {
+				missing = append(missing, m.flag)
+			}
+		}
+		fact(p, "warmed up", "not told without "+strings.Join(missing, ", "), style)
+	}
+	if l.Bare != nil && l.Bare.Err == nil && l.Cold.Err == nil {
+		fact(p, "resistors", fmt.Sprintf("greatest to least current %s with them, %s without", ratioWords(l.Cold.Ratio()), ratioWords(l.Bare.Ratio())), style)
+	}
+	if l.Cold.Err != nil {
+		return
+	}
+	p.line("")
+	p.grid(lineGrid(l, style))
+	seen := map[string]bool{}
+	var by []string
+	for _, w := range l.By {
+		if !seen[w] {
+			seen[w] = true
+			by = append(by, w)
+		}
+	}
+	p.line("")
+	wrapped(p, "", "", "Currents by "+strings.Join(by, " or ")+", taken at the V_DS of the readings.", style.Width)
+}
+
+func gateWords(v float64) string { return withDigits(v, 0.02) }
+
+func ratioWords(x float64) string {
+	if !isNumber(x) || x > 1e4 {
+		return "no end"
+	}
+	return fmt.Sprintf("%.3g", x)
+}
+
+// stateTrouble says why a state has no operating point.
+func stateTrouble(l *bias.Line, err error) string {
+	switch {
+	case errors.Is(err, bias.ErrRunaway):
+		return "no stable operating point, heating outruns the source resistors"
+	case errors.Is(err, bias.ErrBeyond):
+		return "a device would carry more than its sweep reaches"
+	}
+	return Clean(err.Error())
+}
+
+// stateFact says at which gate voltage a line carries its total, the worst
+// dissipation, and where the trimmer of the network has to be.
+func stateFact(p *printer, b Bias, label, how string, l *bias.Line, s *bias.State, style Style) {
+	if s.Err != nil {
+		fact(p, label, how+": "+stateTrouble(l, s.Err), style)
+		return
+	}
+	words := fmt.Sprintf("%s: gate at %s", how, gateWords(s.Gate))
+	if n := b.Plan.Network; n != nil && n.Trimmer > 0 && n.Complete() {
+		if x := n.Setting(s.Gate); x >= 0 && x <= 1 {
+			words += ", trimmer at " + settingCell(x, b.Plan.Turns)
+		} else {
+			words += ", which the trimmer does not reach"
+		}
+	}
+	w := s.Worst()
+	if q := s.Devices[w]; isNumber(q.Power) {
+		words += fmt.Sprintf("; most in %s, %s", Clean(l.Names[w]), FormatTwoDigits(q.Power, "W"))
+		if q.Temp != l.Temp {
+			words += fmt.Sprintf(" at %.0f °C", q.Temp)
+		}
+	}
+	fact(p, label, words, style)
+}
+
+func lineGrid(l *bias.Line, style Style) grid {
+	var values, us []float64
+	for _, q := range l.Gates {
+		values, us = append(values, q.Value), append(us, q.U)
+	}
+	cells, unit := numbers("V", values, us, func(int) string { return NotAvailable })
+	g := grid{style: style, cols: []column{{head: "device", cells: cleanAll(l.Names), wrap: 20}, {head: "alone at idle", unit: unit, cells: cells, rank: 1}}}
+	state := func(head string, s *bias.State, rank int) {
+		if s == nil || s.Err != nil || s.Devices == nil {
+			return
+		}
+		var i, w, t []string
+		for _, d := range s.Devices {
+			i = append(i, bias.AmpWords(d.I))
+			if isNumber(d.Power) {
+				w = append(w, FormatTwoDigits(d.Power, "W"))
+			}
+			t = append(t, fmt.Sprintf("%.0f °C", d.Temp))
+		}
+		g.cols = append(g.cols, column{head: head, cells: i, right: true, rank: rank})
+		if w != nil && rank == 0 {
+			g.cols = append(g.cols, column{head: "power", cells: w, right: true, rank: 2})
+		}
+		if s == &l.Hot {
+			g.cols = append(g.cols, column{head: "device at", cells: t, right: true, rank: 2})
+		}
+	}
+	state("cold", &l.Cold, 0)
+	state("warmed up", &l.Hot, 0)
+	state("without resistors", l.Bare, 3)
+	return g
+}
+
+func cleanAll(names []string) []string {
+	out := make([]string, len(names))
+	for i, n := range names {
+		out[i] = Clean(n)
+	}
+	return out
+}
