@@ -109,7 +109,7 @@ func positive(x float64) number {
 func criterionDocs(by []match.Criterion) []criterionDoc {
 	docs := []criterionDoc{}
 	for _, c := range by {
-		docs = append(docs, criterionDoc{string(c.Key), positive(c.Within), number(c.Weight)})
+		docs = append(docs, criterionDoc{string(c.Key), positive(c.Within), positive(c.Weight)})
 	}
 	return docs
 }

@@ -133,18 +133,9 @@ func (m *Matched) hasTolerance() bool {
 func (m *Matched) valueUnits() string {
 	var units []string
 	for _, c := range m.By {
-		units = append(units, valueInfo(c).Unit)
+		units = append(units, KeyOf(valueKey(c)).Unit)
 	}
 	return strings.Join(units, ", ")
-}
-
-// valueInfo is what stands beside a device for a criterion: of a curve the gate
-// bias at the idle current.
-func valueInfo(c match.Criterion) KeyInfo {
-	if c.Key == match.KeyCurve {
-		return KeyInfo{Unit: "V"}
-	}
-	return KeyOf(c.Key)
 }
 
 // valueWriter writes the values of a device, without a prefix, so that they can be
@@ -173,7 +164,7 @@ func valueDecimals(v, u, step float64) int {
 		return min(wholeSteps(step), 6)
 	}
 	if d, ok := DecimalsFor(u); ok {
-		return min(max(d-1, 3), 6)
+		return min(max(d-1, 3), max(3, writtenDecimals(v)), 6)
 	}
 	return max(0, min(max(3, writtenDecimals(v)), significant(v, 6)))
 }

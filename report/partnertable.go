@@ -25,8 +25,9 @@ func PartnersTable(w io.Writer, x Partners, style Style) error {
 	}
 	p.line("")
 	for _, c := range x.By {
-		if q := d.Result.At(c.Key); q.Ok() {
-			wrapped(p, fmt.Sprintf("%-22s ", x.Sheet.KeyPhrase(c.Key)), "    ", FormatWithAbsolute(*q, KeyOf(c.Key).Unit), style.Width)
+		key := valueKey(c)
+		if q := d.Result.At(key); q.Ok() {
+			wrapped(p, fmt.Sprintf("%-22s ", KeyOf(key).Symbol), "    ", FormatWithAbsolute(*q, KeyOf(key).Unit), style.Width)
 		}
 	}
 	if at := lastMeasured(d); at != "" {
@@ -113,18 +114,14 @@ func partnerGrid(x *Partners, list []match.Partner, style Style) grid {
 		}
 		imbalance[i], share[i] = m.Sharing.Imbalance, m.Sharing.Share
 		claimed = claimed || isNumber(m.Sharing.Imbalance)
-		key := x.By[0].Key
-		if key == match.KeyCurve {
-			key = fit.KeyVgsIdle
-		}
 		values[i] = NotAvailable
-		if v, u, _ := lot.Read(&x.Members[m.Member].Result, key); isNumber(v) {
+		if v, u, _ := lot.Read(&x.Members[m.Member].Result, valueKey(x.By[0])); isNumber(v) {
 			values[i] = fixed(v, valueDecimals(v, u, x.Step))
 		}
 	}
 	g := grid{style: style, cols: []column{
 		{head: "", cells: place, right: len(x.Locked) == 0}, {head: "device", cells: names}, {head: "lot", cells: lots, wrap: 16}, {head: "date code", cells: codes, rank: 1},
-		{head: valueHead(x.By[0]), unit: "V", cells: values, right: true},
+		{head: KeyOf(valueKey(x.By[0])).Symbol, unit: "V", cells: values, right: true},
 	}}
 	for c, crit := range x.By {
 		v := make([]float64, n)
@@ -147,9 +144,11 @@ func partnerGrid(x *Partners, list []match.Partner, style Style) grid {
 	return g
 }
 
-func valueHead(c match.Criterion) string {
+// valueKey is what stands beside a device for a criterion: of a curve the gate bias
+// at the idle current.
+func valueKey(c match.Criterion) fit.Key {
 	if c.Key == match.KeyCurve {
-		return KeyOf(fit.KeyVgsIdle).Symbol
+		return fit.KeyVgsIdle
 	}
-	return KeyOf(c.Key).Symbol
+	return c.Key
 }

@@ -140,12 +140,15 @@ func SetCard(w io.Writer, f SetFile, style Style) error {
 	p.line("")
 	p.line("%s", style.paint("History", bold))
 	for _, c := range f.Changes {
-		wrapped(p, "  ", "    ", changeWords(c), style.Width)
+		if c.Field != "reason" { // it stands behind the change of state as well
+			wrapped(p, "  ", "    ", changeWords(c), style.Width)
+		}
 	}
 	return p.err
 }
 
-// then and now are what a device of the set had when it was made and has now.
+// thenNow gives what a device of the set had when it was made, with its u, and has
+// now.
 func (f *SetFile) thenNow(i int, key fit.Key) (then, u, now float64) {
 	m := &f.Members[i]
 	v := m.Readings[string(key)]

@@ -162,6 +162,9 @@ func (rq *MatchRequest) criteria(env *Env, first fit.Key) ([]match.Criterion, er
 		}
 		by[i].Weight = x
 	}
+	if by[0].Weight == 0 {
+		by[0].Weight = 1 // it leads
+	}
 	return by, nil
 }
 
@@ -401,7 +404,10 @@ func (e *Env) store(ctx context.Context, numbers []int, list []record.Set) (map[
 // record is a set of members as it is kept: what it was matched by, and all that is
 // known of its devices now.
 func (st *stock) record(members []int, by []match.Criterion, at, spread float64, unit string) record.Set {
-	s := record.Set{Unit: unit, At: record.Known(at), SourceResistor: record.Known(st.opt.SourceResistor), Spread: record.Known(spread)}
+	s := record.Set{Unit: unit, At: record.Known(at), Spread: record.Known(spread)}
+	if r := st.opt.SourceResistor; r > 0 {
+		s.SourceResistor = record.Known(r)
+	}
 	if by[0].Key == fit.KeyVgsth {
 		s.At = record.Known(st.sheets[0].TestCurrent)
 	}

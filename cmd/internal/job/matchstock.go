@@ -123,11 +123,7 @@ func (st *stock) joins(s *report.Sheet) (notes []fit.Warning, why string, err er
 		}
 		break
 	}
-	by := st.opt.By[0].Key
-	if by == match.KeyCurve {
-		by = fit.KeyVgsIdle
-	}
-	differ, doubts := unlikeLots(st.sheets[0], s, by, false)
+	differ, doubts := unlikeLots(st.sheets[0], s, leading(st.opt.By), false)
 	if differ != nil {
 		var words []string
 		for _, d := range differ {
@@ -245,7 +241,7 @@ func (st *stock) doubts() {
 					own[sit.Session], metersSeen[sit.Meters] = true, true
 				}
 			}
-			if q := d.Result.At(st.opt.By[0].Key); q.Ok() && q.UBetween > 0 {
+			if q := d.Result.At(leading(st.opt.By)); q.Ok() && q.UBetween > 0 {
 				between = append(between, q.UBetween)
 			}
 		}
