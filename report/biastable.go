@@ -30,6 +30,11 @@ type Bias struct {
 // of the devices. With lines asked for it writes those and leaves out what is of the lot.
 func BiasTable(w io.Writer, b Bias, style Style) error {
 	p := &printer{w: w}
+	biasTable(p, b, style)
+	return p.err
+}
+
+func biasTable(p *printer, b Bias, style Style) {
 	pl := b.Plan
 	p.line("%s", style.paint(fmt.Sprintf("Gate bias of lot %s at %s.", Clean(pl.Lot), FormatGiven(pl.Idle, "A")), bold))
 	if len(b.Lines) > 0 {
@@ -38,7 +43,7 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 			lineTable(p, b, l, style)
 		}
 		biasNotes(p, b, style)
-		return p.err
+		return
 	}
 	p.line("")
 	fact(p, "centre", centreFact(pl), style)
@@ -85,7 +90,6 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 	p.line("")
 	p.grid(unitGrid(b, style))
 	biasNotes(p, b, style)
-	return p.err
 }
 
 func centreFact(pl *bias.Plan) string {
@@ -311,11 +315,7 @@ func unitGrid(b Bias, style Style) grid {
 	for i := range pl.Units {
 		u := &pl.Units[i]
 		names, values, us = append(names, Clean(u.Name)), append(values, u.Gate.Value), append(us, u.Gate.U)
-		note := Clean(u.Why)
-		if n := pl.Now; n != nil && n.CoveredBy != "" && u.Gate.Ok() && !u.Covered && u.Counts {
-			note = "outside"
-		}
-		notes = append(notes, note)
+		notes = append(notes, b.UnitNote(u))
 		draw, setting := "", ""
 		if pl.Now != nil && u.Gate.Ok() {
 			draw = drawnCell(u.At)
@@ -345,32 +345,9 @@ func settingCell(x, turns float64) string {
 	return travel(x)
 }
 
-// biasNotes are what was taken for granted, and the warnings.
+// biasNotes writes what was taken for granted, and the warnings.
 func biasNotes(p *printer, b Bias, style Style) {
-	var notes []string
-	if n := b.Plan.Network; n != nil {
-		if b.NoSupplyTol || b.NoResistorTol {
-			what := "supply and resistors have"
-			switch {
-			case !b.NoSupplyTol:
-				what = "the resistors have"
-			case !b.NoResistorTol:
-				what = "the supply has"
-			}
-			notes = append(notes, "No tolerance was given that "+what+": taken as exact (--supply-tol, --resistor-tol).")
-		}
-		if b.AssumedTrimmer && (n.Trimmer > 0 || b.Plan.Trim != nil) {
-			notes = append(notes, fmt.Sprintf("A trimmer's value is taken as ± %.0f %% (common practice; --trimmer-tol says another).", 100*n.TrimTol))
-		}
-		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones.")
-	}
-	if b.Plan.Now != nil && b.Plan.Now.Trimmed && len(b.Lines) == 0 {
-		notes = append(notes, "trimmer: part of its travel from the end with the least gate voltage, everything else nominal.")
-	}
-	if t := b.Plan.Thermal; t.Assumed && (isNumber(t.ZeroGate) || len(b.Lines) > 0) {
-		notes = append(notes, "The temperature of the lot is not known: 25 °C is taken.")
-	}
-	if len(notes) > 0 {
+	if notes := b.TakenForGranted(); len(notes) > 0 {
 		p.line("")
 		for _, n := range notes {
 			wrapped(p, "", "", n, style.Width)
