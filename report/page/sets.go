@@ -85,7 +85,7 @@ func (m *matched) lead(v *setsView) {
 	if m.Cut {
 		v.Lead = append(v.Lead, "The search was interrupted: these are the best sets found until then.")
 	}
-	v.Tiles = append(v.Tiles, tile{template.HTML("sets"), strconv.Itoa(len(m.Sets)), richf("%s, of %s offered", m.noun(len(m.Sets)), plural(m.Offered, "device"))})
+	v.Tiles = append(v.Tiles, tile{template.HTML("sets"), strconv.Itoa(len(m.Sets)), richf("%s, of %s", m.noun(len(m.Sets)), plural(m.Offered, "device"))})
 	worst, total := report.NotAvailable, template.HTML("no set")
 	if isNumber(m.Worst) {
 		worst, total = report.SpreadWords(m.Worst)+" mV", richf("all together %s mV", report.SpreadWords(m.Total))
@@ -264,8 +264,12 @@ func (m *matched) says(v *setsView) {
 			v.Says = append(v.Says, group{richf("Inside package %s", report.Clean(in.Package)), richf("Its sides are %s mV apart, whatever they are set with (set %s).", report.SpreadWords(in.Spread), m.SetColumn(s.Number))})
 		}
 	}
+	var more []string
 	for _, x := range m.More {
-		v.Says = append(v.Says, group{"More devices", rich(report.Sentence(x.Text))})
+		more = append(more, report.Sentence(x.Text))
+	}
+	if len(more) > 0 {
+		v.Says = append(v.Says, group{"More devices", rich(strings.Join(more, " "))})
 	}
 }
 

@@ -43,7 +43,7 @@ func (m *matched) strip(v *setsView) {
 	var groups []svg.Group
 	for i := range m.Sets {
 		s := &m.Sets[i]
-		g := svg.Group{Name: m.NameOfSet(s.Number), Shape: i, Apart: !s.Within && m.HasTolerance(), Note: report.SpreadWords(s.Spread) + " mV"}
+		g := svg.Group{Name: m.NameOfSet(s.Number), Apart: !s.Within && m.HasTolerance(), Note: report.SpreadWords(s.Spread) + " mV"}
 		if isNumber(s.Sharing.Imbalance) {
 			g.Note += ", imbalance " + report.FormatTwoDigits(s.Sharing.Imbalance, "A")
 		}
@@ -153,7 +153,7 @@ func (m *matched) curves(v *setsView) {
 	} else if with < len(m.Sets) {
 		note += fmt.Sprintf(" %d of %d sets have curves.", with, len(m.Sets))
 	}
-	f := &curvesFigure{Switch: "sets", Of: "the sets"}
+	f := &curvesFigure{Switch: "sets", Of: "the sets", Choice: "Show"}
 	t := &table{Caption: "Greatest difference in a set at each current (mV)", Heads: []head{{"current", false}}}
 	var apart, whole []svg.Panel
 	byCurrent := map[float64][]string{}

@@ -3,7 +3,6 @@ package svg
 import (
 	"io"
 	"math"
-	"strconv"
 
 	"gatesill/report"
 )
@@ -50,7 +49,7 @@ func AppendPanels(dst []byte, list []Panel, o PanelsOptions) ([]byte, Drawn) {
 	c := &canvas{b: dst, f: o.Frame}
 	const left, foot, gapX, gapY = 58.0, 48.0, 10.0, 20.0
 	if o.Height <= 0 {
-		o.Height = math.Max(250, foot+float64(rows)*(64+gapY))
+		o.Height = math.Max(250, foot+float64(rows)*(62+gapY))
 		c.f.Height = o.Height
 	}
 	w := (o.Width - left - 10 - gapX*float64(cols-1)) / float64(cols)
@@ -137,8 +136,8 @@ func (p *panels) shown(x, y float64) bool {
 func (p *panels) panel(one *Panel, u report.Scale, left, below bool) {
 	x := newScale(p.o.XAxis, p.xlo, p.xhi, p.l, p.r)
 	y := newScale(p.o.YAxis, p.ylo, p.yhi, p.d, p.t)
-	xs := thinTicks(&x, x.ticks(60, report.Scale{}), p.r-p.l)
-	ys := y.ticks(34, u)
+	xs := p.within(&x, x.ticks(60, report.Scale{}))
+	ys := y.ticks(20, u)
 	if !left {
 		ys = bare(ys)
 	}
@@ -208,25 +207,22 @@ func bare(list []tick) []tick {
 	return out
 }
 
-// thinTicks leaves out words that would touch each other.
-func thinTicks(s *scale, list []tick, _ float64) []tick {
-	last := math.Inf(-1)
-	for i := range list {
-		k := &list[i]
-		if k.minor || k.label == "" {
+// within keeps the words of ticks that stand below their own picture and do not
+// touch, and leaves out minor ones.
+func (p *panels) within(s *scale, list []tick) []tick {
+	var out []tick
+	last := p.l - 12
+	for _, k := range list {
+		if k.minor {
 			continue
 		}
-		if s.kind == Linear {
-			if x, err := strconv.ParseFloat(k.label, 64); err == nil {
-				k.label = strconv.FormatFloat(x, 'f', -1, 64)
-			}
-		}
-		w := textWidth(k.label, 13)
-		if at := s.at(k.value); at-w/2 < last+4 {
+		half := textWidth(k.label, 13) / 2
+		if at := s.at(k.value); at-half < last+3 || at+half > p.r+6 {
 			k.label = ""
 		} else {
-			last = at + w/2
+			last = at + half
 		}
+		out = append(out, k)
 	}
-	return list
+	return out
 }

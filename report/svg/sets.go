@@ -24,7 +24,6 @@ type Group struct {
 	Mates []Mate
 	Note  string // said when it is pointed at, besides its name and devices
 	Apart bool   // beyond a tolerance: dashed, in the second colour
-	Shape int    // of its marks, counted through six
 }
 
 // SetsOptions lay out a plot of sets.
@@ -83,7 +82,7 @@ func AppendSets(dst []byte, groups []Group, o SetsOptions) ([]byte, Drawn) {
 	s.foot = c.t + math.Max(2, float64(rows))*setRow + 4
 	c.d = s.foot
 	if len(s.left) > 0 {
-		c.d += 62
+		c.d += 56
 	}
 	c.f.Height = c.d + 46
 	c.open("img")
@@ -115,7 +114,8 @@ type sets struct {
 
 type placedGroup struct {
 	Group
-	row int
+	row   int
+	shape int // of its marks
 }
 
 func (g *Group) width() float64 { return g.Mates[len(g.Mates)-1].X - g.Mates[0].X }
@@ -143,7 +143,7 @@ func (s *sets) pack() int {
 		slices.SortStableFunc(chosen, func(a, b Group) int { return cmp.Compare(a.Mates[0].X, b.Mates[0].X) })
 		s.placed = s.placed[:0]
 		var ends []float64
-		for _, g := range chosen {
+		for i, g := range chosen {
 			from := s.x.at(g.Mates[0].X) - 7
 			to := s.x.at(g.Mates[len(g.Mates)-1].X) + 10 + textWidth(shorten(g.Name, 12), 12)
 			if to > s.r { // the name stands to the left
@@ -155,7 +155,7 @@ func (s *sets) pack() int {
 				ends = append(ends, 0)
 			}
 			ends[row] = to
-			s.placed = append(s.placed, placedGroup{g, row})
+			s.placed = append(s.placed, placedGroup{g, row, i % shapeCount})
 		}
 		if len(ends) <= mostSetRows || keep < 2 {
 			s.rest = order[keep:]
@@ -255,7 +255,7 @@ func (s *sets) group(p placedGroup) {
 			side = -4
 		}
 		last = x
-		s.shape(p.Shape, x, y+side, 3.6, m.Hollow, m.Ref, m.Name+" in set "+p.Name+": "+report.FormatPlain(m.X, math.NaN(), s.o.Unit))
+		s.shape(p.shape, x, y+side, 3.6, m.Hollow, m.Ref, m.Name+" in set "+p.Name+": "+report.FormatPlain(m.X, math.NaN(), s.o.Unit))
 		s.drawn.Shown++
 	}
 	s.drawn.Labels++
