@@ -104,7 +104,10 @@ func (s *strip) edges(o CoverageOptions) {
 			}
 		}
 		s.raw(`"/>`)
-		words := o.ReachIs + " " + report.FormatPlain(o.Reach.Low, math.NaN(), o.Unit) + " to " + report.FormatPlain(o.Reach.High, math.NaN(), o.Unit)
+		words := o.ReachIs + " " + report.FormatPlain(o.Reach.Low, math.NaN(), o.Unit)
+		if o.Reach.High > o.Reach.Low {
+			words += " to " + report.FormatPlain(o.Reach.High, math.NaN(), o.Unit)
+		}
 		s.over(o.Reach, s.t-19, "limt halo", words)
 	}
 	if o.Band.drawable() {
@@ -122,7 +125,7 @@ func (s *strip) edges(o CoverageOptions) {
 		s.raw(`"><title>`)
 		s.words(words)
 		s.raw(`</title></path>`)
-		s.over(o.Band, y-9, "halo small", words)
+		s.over(o.Band, y-9, "reft plain halo", words)
 	}
 }
 

@@ -43,6 +43,7 @@ const Style = `.plot{--plot-ink:#1b1f24;--plot-quiet:#d9dde1;--plot-soft:#5a6470
 .plot .reft{fill:var(--plot-mark);font-size:12px}
 .plot .lim{fill:none;stroke:var(--plot-flag);stroke-width:1.2;stroke-dasharray:5 3}
 .plot .limt{fill:var(--plot-flag);font-size:12px}
+.plot .plain{fill:currentColor}
 .plot .sub{font-size:76%}
 .plot .lines path{fill:none;stroke:var(--plot-line);stroke-linejoin:round;stroke-linecap:round}
 .plot .lines .flag{stroke:var(--plot-flag);stroke-opacity:1}
