@@ -33,9 +33,10 @@ func (m *Matched) TradeRows() []match.TradeOff { return m.tradeRows() }
 // HasTolerance reports whether any tolerance was asked for.
 func (m *Matched) HasTolerance() bool { return m.hasTolerance() }
 
-// NameOf names a device, with its lot where there are several.
-func (m *Matched) NameOf(lot, name string) string {
-	return deviceName(lot, name, len(m.Members) > 0 && manyLots(m.Members))
+// Names gives how devices are named: with their lot where there are several.
+func (m *Matched) Names() func(lot, name string) string {
+	many := len(m.Members) > 0 && manyLots(m.Members)
+	return func(lot, name string) string { return deviceName(lot, name, many) }
 }
 
 // NameOfSet is the name of a set that was stored, else its number.
@@ -82,12 +83,13 @@ func IsGain(k fit.Key) bool { return isGain(k) }
 // from those that were not given out.
 func (m *Matched) LeftNames() (free, out []NameGroup) {
 	var lists [2][]lot.Unsorted
+	names := m.Names()
 	for _, l := range m.LeftOver {
 		k := 0
 		if l.Out {
 			k = 1
 		}
-		lists[k] = append(lists[k], lot.Unsorted{Name: m.NameOf(l.Lot, l.Name), Why: Clean(l.Why)})
+		lists[k] = append(lists[k], lot.Unsorted{Name: names(l.Lot, l.Name), Why: Clean(l.Why)})
 	}
 	return GroupNames(lists[0]), GroupNames(lists[1])
 }

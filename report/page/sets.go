@@ -47,6 +47,7 @@ type matched struct {
 	*report.Matched
 	first  *report.Sheet
 	values func(match.Placed) string
+	names  func(lot, name string) string
 }
 
 // WriteSets writes sets as one HTML page. What was computed for the terminal is
@@ -55,7 +56,7 @@ func WriteSets(w io.Writer, r report.Matched) error {
 	if len(r.Sheets) == 0 {
 		return fmt.Errorf("page of sets: no lot")
 	}
-	m := &matched{&r, r.Sheets[0], r.ValuesOf()}
+	m := &matched{&r, r.Sheets[0], r.ValuesOf(), r.Names()}
 	v := &setsView{sheet: newSheet("Matched sets", r.Title(), r.Sheets)}
 	m.lead(v)
 	m.figures(v)
@@ -204,7 +205,7 @@ func (m *matched) members(s *match.Set) template.HTML {
 			b.WriteString(", ")
 		}
 		b.WriteString(`<span class="dev"><b><bdi>`)
-		b.WriteString(string(plain(m.NameOf(d.Lot, d.Name))))
+		b.WriteString(string(plain(m.names(d.Lot, d.Name))))
 		b.WriteString(`</bdi></b> `)
 		b.WriteString(string(plain(m.values(d))))
 		b.WriteString(`</span>`)
@@ -217,7 +218,7 @@ func (m *matched) hottest(s *match.Set) cell {
 	if h < 0 || h >= len(s.Devices) || !isNumber(s.Sharing.Power) {
 		return cell{Text: "–", None: true}
 	}
-	return cell{Text: plain(m.NameOf(s.Devices[h].Lot, s.Devices[h].Name))}
+	return cell{Text: plain(m.names(s.Devices[h].Lot, s.Devices[h].Name))}
 }
 
 // says lists what is left over, what would repair sets and near misses, and what
@@ -250,7 +251,7 @@ func (m *matched) says(v *setsView) {
 		}
 		var names []string
 		for _, d := range s.Devices {
-			names = append(names, m.NameOf(d.Lot, d.Name))
+			names = append(names, m.names(d.Lot, d.Name))
 		}
 		if near++; near <= mostRepairs {
 			v.Repairs = append(v.Repairs, group{plain(strings.Join(names, ", ")), richf("%s mV apart. %s", report.SpreadWords(s.Spread), report.Sentence(words))})

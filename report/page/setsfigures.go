@@ -53,7 +53,7 @@ func (m *matched) strip(v *setsView) {
 				x = d.Values[0]
 			}
 			x, hollow := m.place(d.Member, x)
-			g.Mates = append(g.Mates, svg.Mate{Name: m.NameOf(d.Lot, d.Name), X: x, Hollow: hollow, Ref: d.Member + 1})
+			g.Mates = append(g.Mates, svg.Mate{Name: m.names(d.Lot, d.Name), X: x, Hollow: hollow, Ref: d.Member + 1})
 		}
 		groups = append(groups, g)
 	}
@@ -70,7 +70,7 @@ func (m *matched) strip(v *setsView) {
 			continue
 		}
 		x, hollow := m.place(l.Member, q.Value)
-		o.Left = append(o.Left, svg.Mate{Name: m.NameOf(l.Lot, l.Name), X: x, Hollow: hollow, Ref: l.Member + 1})
+		o.Left = append(o.Left, svg.Mate{Name: m.names(l.Lot, l.Name), X: x, Hollow: hollow, Ref: l.Member + 1})
 	}
 	if len(groups)+len(o.Left) == 0 {
 		return
@@ -255,7 +255,7 @@ func (m *matched) panels(s *match.Set) (apart, whole svg.Panel) {
 		}
 	}
 	for k, d := range s.Devices {
-		diff := svg.Curve{Name: m.NameOf(d.Lot, d.Name), X: currents, Ref: d.Member + 1}
+		diff := svg.Curve{Name: m.names(d.Lot, d.Name), X: currents, Ref: d.Member + 1}
 		all := svg.Curve{Name: diff.Name, Y: currents, Ref: diff.Ref}
 		for i, c := range currents {
 			diff.Y = append(diff.Y, levels[k][c]-mean[i])

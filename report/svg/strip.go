@@ -58,7 +58,7 @@ func AppendStrip(dst []byte, spots []Spot, o StripOptions) ([]byte, Drawn) {
 	}
 	c := &canvas{b: dst, f: o.Frame}
 	c.l, c.t, c.r, c.d = 20, 30, o.Width-20, o.Height-46
-	s := &strip{canvas: c, o: o}
+	s := &strip{canvas: c, o: o, why: "flagged: "}
 	flagged := s.take(spots)
 	s.room()
 	s.ranges()
@@ -83,6 +83,7 @@ func AppendStrip(dst []byte, spots []Spot, o StripOptions) ([]byte, Drawn) {
 type strip struct {
 	*canvas
 	o     StripOptions
+	why   string // before the reason of a flag
 	spots []Spot // ascending
 	x     scale
 	drawn Drawn
@@ -333,7 +334,7 @@ func (s *strip) flagged(at func(int) (float64, float64), size float64) {
 		s.ref(p.Ref)
 		if k < s.f.Focus {
 			s.raw(` tabindex="0" role="img" aria-label="`)
-			s.words(p.Name + ", flagged: " + p.Flag)
+			s.words(p.Name + ", " + s.why + p.Flag)
 			s.raw(`"`)
 		}
 		s.raw(` d="M`)
@@ -347,7 +348,7 @@ func (s *strip) flagged(at func(int) (float64, float64), size float64) {
 		s.raw("h")
 		s.num(-2.1 * r)
 		s.raw(`z"><title>`)
-		s.words(p.Name + " (flagged: " + p.Flag + ")")
+		s.words(p.Name + " (" + s.why + p.Flag + ")")
 		s.raw(`</title></path>`)
 		s.drawn.Shown++
 		k++
