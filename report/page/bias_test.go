@@ -156,7 +156,7 @@ func TestBiasOfHostileNames(t *testing.T) {
 
 // The limit is twice what it was when it was written.
 func TestBiasOfALargeLotIsSmall(t *testing.T) {
-	b := biasOf(t, invented.Lot(invented.Options{Devices: 5000, Points: 2, Seed: 5, Clean: true}), trimmed())
+	b := biasOf(t, large(), trimmed())
 	start := time.Now()
 	page := writeBias(t, b)
 	t.Logf("%d kB in %v", len(page)>>10, time.Since(start))

@@ -147,8 +147,11 @@ func (m *matched) table(v *setsView) {
 	watts, wattUnit := report.SizeColumn("W", power)
 	shares := report.PercentColumn(share)
 	t := &table{Class: "sets", Caption: "The sets, the best first", Heads: []head{{"set", false}, {richf("devices (%s)", m.ValueUnits()), false}}}
+	if m.Size > 2 {
+		t.Class += " several"
+	}
 	if n > longTable {
-		t.Class = "sets long"
+		t.Class += " long"
 	}
 	for _, c := range m.By {
 		name := "spread (mV)"

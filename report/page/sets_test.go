@@ -7,6 +7,7 @@ import (
 	"math"
 	"regexp"
 	"strings"
+	"sync"
 	"testing"
 	"time"
 
@@ -185,10 +186,15 @@ func TestSetsOfHostileNames(t *testing.T) {
 	}
 }
 
+// large is a lot of 5000 devices, made once.
+var large = sync.OnceValue(func() report.Sheet {
+	return invented.Lot(invented.Options{Devices: 5000, Points: 2, Seed: 5, Clean: true})
+})
+
 // The page of a large lot stays small: the limit is twice what it was when it was
 // written.
 func TestSetsOfALargeLotAreSmall(t *testing.T) {
-	m := matchedOf(t, match.Options{By: byBias(0.01), NoTradeOff: true}, invented.Lot(invented.Options{Devices: 5000, Points: 2, Seed: 5, Clean: true}))
+	m := matchedOf(t, match.Options{By: byBias(0.01), NoTradeOff: true}, large())
 	start := time.Now()
 	page := writeSets(t, m)
 	t.Logf("%d sets: %d kB in %v", len(m.Sets), len(page)>>10, time.Since(start))

@@ -154,7 +154,7 @@ func (s *scale) rootTicks(px float64, unit report.Scale) []tick {
 	if s.lo <= 0 {
 		list = append(list, tick{value: 0, label: "0"})
 	}
-	if s.hi <= tiny {
+	if s.hi <= tiny || !drawable(s.hi) {
 		return list
 	}
 	top := s.at(s.hi)

@@ -117,7 +117,7 @@ func (p *panels) ranges(list []Panel) {
 		p.xlo, p.xhi = p.xlo-pad, p.xhi+pad
 	}
 	p.ylo, p.yhi = widen(p.ylo, p.yhi)
-	if more := (p.o.Least - (p.yhi - p.ylo)) / 2; more > 0 {
+	if more := (p.o.Least - (p.yhi - p.ylo)) / 2; more > 0 && drawable(p.o.Least) {
 		p.ylo, p.yhi = p.ylo-more, p.yhi+more
 	}
 	pad := 0.06 * (p.yhi - p.ylo)
