@@ -87,42 +87,42 @@ func (c *comparing) takeAsItIs(b biases) Option {
 		o.Text = why + ", so that what the devices would draw at the present gate voltage is not known"
 		return o
 	}
-	var known []idling
+	var known []fit.Drawn
 	unknown := 0
 	how := map[string]int{}
 	for _, m := range b.candidate {
-		i := idleAt(m, b.old+b.off, b.idle, c.opt.Beta, c.ref.lot.PChannel)
-		if math.IsNaN(i.i) {
+		i := m.Result.CurrentAt(b.old+b.off, b.idle, c.opt.Beta, c.ref.lot.PChannel)
+		if math.IsNaN(i.I) {
 			unknown++
 			continue
 		}
 		known = append(known, i)
-		how[i.how]++
+		how[i.By]++
 	}
 	gate := fmt.Sprintf("at %s, the centre of lot %s", volts(b.old), c.ref.lot.Name)
 	if len(known) == 0 {
 		o.Text = gate + ", the current of no device is known: its curve, gain factor or transconductance is missing (--beta gives one for all)"
 		return o
 	}
-	slices.SortStableFunc(known, func(a, b idling) int {
-		return cmp.Or(cmp.Compare(a.i, b.i), cmp.Compare(a.beyond, b.beyond))
+	slices.SortStableFunc(known, func(a, b fit.Drawn) int {
+		return cmp.Or(cmp.Compare(a.I, b.I), cmp.Compare(a.Beyond, b.Beyond))
 	})
 	o.Text = fmt.Sprintf("%s, they would draw %s in the median instead of %s (least %s, greatest %s; %s by %s)", gate,
-		known[(len(known)-1)/2].words(), amps(b.idle), known[0].words(), known[len(known)-1].words(), devices(len(known)), mostOf(how))
+		drawnWords(known[(len(known)-1)/2]), amps(b.idle), drawnWords(known[0]), drawnWords(known[len(known)-1]), devices(len(known)), mostOf(how))
 	if unknown > 0 {
 		o.Text += fmt.Sprintf("; of %d nothing tells", unknown)
 	}
 	return o
 }
 
-func (i idling) words() string {
-	switch i.beyond {
+func drawnWords(i fit.Drawn) string {
+	switch i.Beyond {
 	case 1:
-		return "more than " + amps(i.i)
+		return "more than " + amps(i.I)
 	case -1:
-		return "less than " + amps(i.i)
+		return "less than " + amps(i.I)
 	}
-	return amps(i.i)
+	return amps(i.I)
 }
 
 // mostOf names what was used, the most frequent first.

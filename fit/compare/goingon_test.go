@@ -1,64 +1,9 @@
 package compare
 
 import (
-	"fmt"
-	"math"
 	"strings"
 	"testing"
-
-	"gatesill/fit"
 )
-
-// A gain factor of 3.8 A/V² and 145 mV less overdrive: 90 mA instead of 250 mA
-// (arithmetic beside the scenario of two lots).
-func TestIdleAtOldVoltage(t *testing.T) {
-	m := member("D", 3.145, nan, nan, nan)
-	i := idleAt(&m, 3, 0.25, 3.8, false)
-	near(t, "by the gain factor given", i.i, 0.0900, 0.0001)
-	if i.how != "the gain factor given" {
-		t.Error(i.how)
-	}
-	m.Result.Beta = fit.Quantity{Value: 3.8}
-	near(t, "by its own", idleAt(&m, 3, 0.25, 99, false).i, 0.0900, 0.0001)
-	// The device as a p-channel part.
-	p := member("P", -3.145, nan, nan, nan)
-	p.Result.Beta = fit.Quantity{Value: -3.8}
-	near(t, "p-channel", idleAt(&p, -3, 0.25, nan, true).i, 0.0900, 0.0001)
-	// With mobility degradation: v = [θI + √(θ²I²+2βI)]/β = 0.4033 at θ = 0.5, less 145 mV.
-	m.Result.Theta = fit.Quantity{Value: 0.5}
-	v := (0.5*0.25+math.Sqrt(0.25*0.25*0.25+2*3.8*0.25))/3.8 - 0.145
-	near(t, "with θ", idleAt(&m, 3, 0.25, nan, false).i, 3.8/2*v*v/(1+0.5*v), 1e-12)
-	// Below the threshold nothing flows.
-	near(t, "off", idleAt(&m, 2, 0.25, nan, false).i, 0, 0)
-
-	// Its own curve, of the same square law, to a thousandth between the points.
-	c := member("C", 3.145, nan, nan, nan)
-	vt := 3.145 - math.Sqrt(2*0.25/3.8)
-	for _, at := range fit.LevelCurrents[3:13] {
-		c.Result.Levels = append(c.Result.Levels, fit.Level{I: at, Vg: vt + math.Sqrt(2*at/3.8)})
-	}
-	for _, gate := range []float64{2.85, 2.9, 3, 3.1, 3.145, 3.3} {
-		i := idleAt(&c, gate, 0.25, nan, false)
-		want := 1.9 * (gate - vt) * (gate - vt)
-		near(t, fmt.Sprint("along the curve at ", gate), i.i/want, 1, 1e-3)
-		if i.how != "their own curves" {
-			t.Error(i.how)
-		}
-	}
-	if i := idleAt(&c, 2.5, 0.25, nan, false); i.beyond != -1 || math.Abs(i.i-1e-3) > 1e-12 {
-		t.Errorf("%+v", i)
-	}
-	if i := idleAt(&c, 9, 0.25, nan, false); i.beyond != 1 || math.Abs(i.i-1) > 1e-12 {
-		t.Errorf("%+v", i)
-	}
-	// Transconductance for small changes only.
-	g := member("G", 3.145, nan, nan, nan)
-	g.Result.GmIdle = fit.Quantity{Value: 1.25}
-	near(t, "by gm", idleAt(&g, 3.125, 0.25, nan, false).i, 0.225, 1e-12)
-	if i := idleAt(&g, 3, 0.25, nan, false); !math.IsNaN(i.i) {
-		t.Errorf("by gm over 145 mV: %+v", i)
-	}
-}
 
 func option(t *testing.T, c *Comparison, name string, contains ...string) Option {
 	t.Helper()
