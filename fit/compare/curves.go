@@ -42,7 +42,7 @@ const (
 func (c *comparing) curves() *Band {
 	at, sh := c.shifts()
 	if len(at) == 0 {
-		c.warn(fit.CodeNotAsked, "the curves were not compared: there is no current at which both lots have enough gate voltages")
+		c.warnNoCurves()
 		return nil
 	}
 	b := &Band{Level: c.opt.Level}
@@ -84,6 +84,22 @@ func (c *comparing) curves() *Band {
 	}
 	b.Text = c.bandWords(b, sh, df)
 	return b
+}
+
+// warnNoCurves says what the curves lack: devices, or a current that both lots reach.
+func (c *comparing) warnNoCurves() {
+	if c.opt.Spots { // nobody expects curves of them
+		return
+	}
+	n, what := min(levelsOf(partOf(c.ref.lot)).has, levelsOf(partOf(c.cand.lot)).has), "devices with a curve"
+	if c.pairs != nil {
+		n, what = min(levelsOf(c.pairs.ref).has, levelsOf(c.pairs.cand).has), "pairs with curves"
+	}
+	if n < fewest {
+		c.warn(fit.CodeNTooSmall, fmt.Sprintf("the curves were not compared: they need %d %s on either side, and there are %d", fewest, what, n))
+		return
+	}
+	c.warn(fit.CodeFewPoints, "the curves were not compared: there is no current that enough of them pass in both lots")
 }
 
 // levelShifts are the shifts at several currents without what is common to the lots.
