@@ -229,7 +229,7 @@ func widest(b *Band) float64 {
 	return w
 }
 
-// parallelWords says whether the shift changes with the current, by its change from
+// parallelWords finds whether the shift changes with the current, by its change from
 // the lowest current to the highest, from which what the lots share falls out.
 func parallelWords(b *Band, s *levelShifts, df, level float64) string {
 	first, last := b.Points[0], b.Points[len(b.Points)-1]
@@ -238,6 +238,7 @@ func parallelWords(b *Band, s *levelShifts, df, level float64) string {
 	se := math.Sqrt(math.Max(0, s.cov[0][0]+s.cov[k][k]-2*s.cov[0][k]))
 	switch {
 	case se > 0 && math.Abs(d) > stats.UpperT((1-level)/2, df)*se:
+		b.Changes = true
 		return fmt.Sprintf("; it changes with the current, by %s from the lowest to the highest", shiftWords(d))
 	case b.Differs:
 		return "; no change with the current is seen: a parallel shift"

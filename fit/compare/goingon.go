@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 	"strings"
 
 	"gatesill/fit"
@@ -239,14 +240,14 @@ func (c *comparing) sortFirst() Option {
 	var parts []string
 	used := 0
 	for _, b := range s.Bins {
+		parts = append(parts, strconv.Itoa(len(b.Devices)))
 		if len(b.Devices) > 0 {
 			used++
-			parts = append(parts, fmt.Sprintf("%d from %s", len(b.Devices), volts(b.Low)))
 		}
 	}
-	o.Text = fmt.Sprintf("%s of %s", stand(used, "bin", "bins"), millivolts(width))
-	if used <= 12 {
-		o.Text += ": " + strings.Join(parts, ", ")
+	o.Text = fmt.Sprintf("they fill %d of %s of %s", used, stand(len(s.Bins), "bin", "bins"), millivolts(width))
+	if len(parts) > 1 && len(parts) <= 12 {
+		o.Text += fmt.Sprintf(", %s from %s up", strings.Join(parts, ", "), volts(s.Bins[0].Low))
 	}
 	if centre := c.out.Centre[0]; !math.IsNaN(c.opt.Margin) && !math.IsNaN(centre) {
 		n := 0

@@ -132,6 +132,7 @@ type Band struct {
 	Level    float64
 	Critical float64 // multiple of the standard error used
 	Differs  bool    // somewhere the band leaves 0 out
+	Changes  bool    // the shift changes from the lowest current to the highest
 	Text     string  // one sentence
 }
 

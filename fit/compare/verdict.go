@@ -3,6 +3,7 @@ package compare
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"gatesill/fit"
 )
@@ -63,6 +64,8 @@ func (c *comparing) benchWords() string {
 	if o := &c.out; c.pairs == nil || !(o.Low > 0 || o.High < 0) {
 		return ""
 	}
+	// The next step of that warning, the same parts measured with both, is what was done.
+	c.out.Warnings = slices.DeleteFunc(c.out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown })
 	if !math.IsNaN(c.out.Raw) {
 		return "; what all of them share is the bench or the session rather than the parts"
 	}
