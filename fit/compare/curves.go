@@ -251,5 +251,5 @@ func fromTo(least, most float64) string {
 	if signed(least) == signed(most) {
 		return shiftWords(least)
 	}
-	return rangeWords(least, most)
+	return signed(least) + " to " + shiftWords(most)
 }

@@ -188,7 +188,7 @@ func (r *run) words(t *Trend) []string {
 	if t.Provisional && !math.IsNaN(t.Low) {
 		text = append(text, fmt.Sprintf("the limits rest on %s and are provisional: %d settle them", stand(timed(t), "lot", "lots"), settled))
 	}
-	if t.Untimed {
+	if t.Untimed && !math.IsNaN(t.Low) {
 		text = append(text, "lots without a time have no place in the run: they are in no control limit")
 	}
 	return text
