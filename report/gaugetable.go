@@ -254,9 +254,53 @@ func gaugeDrifts(p *printer, g Gauge, style Style) {
 	}
 	p.line("")
 	p.line("%s", style.paint("Drift along a session", bold))
+	gaugeBlind(p, g.Drifts, style)
 	for _, d := range g.Drifts {
+		if d.Blind() && d.First == nil && blindOnes(g.Drifts) > 1 {
+			continue
+		}
 		wrapped(p, "  "+Clean(d.Sitting)+": ", "    ", Clean(Sentence(d.Text)), style.Width)
 	}
+}
+
+// blindOnes counts the sessions that could show a large drift only, with nothing else
+// to say of them.
+func blindOnes(list []gauge.Drift) int {
+	n := 0
+	for i := range list {
+		if list[i].Blind() && list[i].First == nil {
+			n++
+		}
+	}
+	return n
+}
+
+// gaugeBlind says of all such sessions in one line what they could not show.
+func gaugeBlind(p *printer, list []gauge.Drift, style Style) {
+	n := blindOnes(list)
+	if n < 2 {
+		return
+	}
+	var names []string
+	low, high := math.Inf(1), 0.0
+	for i := range list {
+		if d := &list[i]; d.Blind() && d.First == nil {
+			names = append(names, d.Sitting)
+			if x := d.Large(); isNumber(x) {
+				low, high = min(low, x), max(high, x)
+			}
+		}
+	}
+	large := ""
+	if high > 0 {
+		large = " (of some " + FormatTwoDigits(low, "V")
+		if most := FormatTwoDigits(high, "V"); most != FormatTwoDigits(low, "V") {
+			large += " to " + most
+		}
+		large += ")"
+	}
+	wrapped(p, fmt.Sprintf("  %d sessions: ", n), "    ", fmt.Sprintf("No drift seen, but with each device measured once only a large one would show%s: put the first one in again at the end. (%s)",
+		large, namesWords(names, shownNames)), style.Width)
 }
 
 func gaugeCharts(p *printer, g Gauge, style Style) {

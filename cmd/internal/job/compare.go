@@ -54,8 +54,8 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	if b, ok := rq.Beta.Get(); ok && !(b > 0) {
 		return Usage("--beta 3.8", "--beta: %g A/V², must be above 0", b)
 	}
-	if t, ok := rq.Tempco.Get(); ok && math.Abs(t) > greatestTempco {
-		return Usage("--tempco -4mV/K", "--tempco: %g V/K is more than any gate voltage moves; -4 mV/K is written -4mV/K", t)
+	if err := checkTempco(rq.Tempco); err != nil {
+		return err
 	}
 	if rq.Paired && rq.Unpaired {
 		return Usage("leave one of them out", "--paired and --unpaired exclude each other")
@@ -70,10 +70,6 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	}
 	return nil
 }
-
-// greatestTempco is a slope beyond which a unit was forgotten: gate voltages move
-// by -7 to +5 mV/K (common practice, no source).
-const greatestTempco = 0.1 // V/K
 
 // Compare holds one lot or several against a reference lot. With rq.Fail it ends
 // in [ExitNo] when one of them differs or is outside the margin.
@@ -133,12 +129,8 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 
 // doubt warns of numbers that are taken as given and hardly meant.
 func (e *Env) doubt(ref *report.Sheet, rq CompareRequest) {
-	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
-		e.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
-	}
-	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
-		e.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
-	}
+	e.doubtMargin(rq.Margin)
+	e.doubtTempco(rq.Tempco, ref.Part)
 }
 
 // failOf ends in [ExitNo] when a lot differs or is outside the margin. Too few to tell
