@@ -145,7 +145,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	}
 	if c.Curves != nil {
 		fact(p, "curves", Clean(Sentence(c.Curves.Text)), style)
-		if len(c.Curves.Points) > 0 && (c.Curves.Changes || c.Curves.Differs && c.Verdict == compare.NoDifference) {
+		if len(c.Curves.Points) > 0 && (c.Curves.Changes || c.Curves.Differs && c.Verdict == compare.NoDifference && c.ForTemp == 0) {
 			p.line("")
 			p.grid(bandGrid(c.Curves, style))
 		}
