@@ -50,7 +50,7 @@ func (c *comparing) besideWords() string {
 	const counts = "; the verdict is that of the primary test alone, which was chosen beforehand: the rest is a reason to measure more"
 	switch {
 	case o.Verdict == NoDifference:
-		if o.Curves != nil && o.Curves.Differs {
+		if o.Curves != nil && o.Curves.Differs && o.ForTemp == 0 { // the band is without what was taken off for that
 			apart = append(apart, "the band of the curves")
 		}
 		if len(apart) > 0 {

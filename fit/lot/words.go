@@ -137,7 +137,7 @@ func (g *twoGroups) sentence() string {
 	if g.also != nil {
 		text += fmt.Sprintf(", and %s parts them in the same way", NameOf(g.also.key))
 	}
-	text += fmt.Sprintf(" (score %s, bar %s: fewer than 1 %% of lots of one population pass it)", short(g.parts.score), short(g.bar))
+	text += fmt.Sprintf(" (evidence %s, where %s is needed: fewer than 1 %% of lots of one population have as much)", short(g.parts.score), short(g.bar))
 	return text + "; this is not evidence of origin: stop, ask the source, measure all devices"
 }
 
