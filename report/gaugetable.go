@@ -78,7 +78,12 @@ func gaugeWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
 // gaugeNone says what to measure where no device was put in twice.
 func gaugeNone(s Sheet, g Gauge) string {
 	text := "No device was put in twice in one session: how well the bench repeats is not known from this lot. Put 10 devices in three times each, in random order: gatesill gauge " +
-		Clean(quotedName(s.Lot.Name)) + " --rounds 3 writes one."
+		Clean(quotedName(s.Lot.Name)) + " --rounds 3 writes one. "
+	if len(g.History) > 0 {
+		text += "Rounds on several days do not count for that, each day is a session of its own: what days differ by would be taken for the bench's; the changes between them stand below."
+	} else {
+		text += "All rounds belong in one session: one day, one operator, one fixture; of files without dates those with the same import --session NAME."
+	}
 	if g.Used.Value > 0 {
 		text += fmt.Sprintf(" Used here: %s (%s).", FormatTwoDigits(g.Used.Value, "V"), Clean(g.Used.Basis))
 	}
