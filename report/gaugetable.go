@@ -368,8 +368,8 @@ func gaugeHistory(p *printer, s *Sheet, h *gauge.History, style Style) {
 		wrapped(p, "", "  ", "Repeatability from the differences: "+FormatTwoDigits(h.FromDiffs, "V")+" (robust).", style.Width)
 	}
 	if isNumber(h.Limit) {
-		wrapped(p, "", "  ", fmt.Sprintf("A device changed when its own change is beyond %s, corrected for %d devices; for one alone 2·√2·sigma is %s (sigma %s: %s).",
-			FormatTwoDigits(h.Limit, "V"), len(h.Changes), FormatTwoDigits(h.LimitOne, "V"), FormatTwoDigits(h.Sigma, "V"), Clean(h.SigmaBasis)), style.Width)
+		wrapped(p, "", "  ", fmt.Sprintf("A device changed when its own change is beyond %s, corrected for %s; for one alone 2·√2·sigma is %s (sigma %s: %s).",
+			FormatTwoDigits(h.Limit, "V"), count(len(h.Changes), "device"), FormatTwoDigits(h.LimitOne, "V"), FormatTwoDigits(h.Sigma, "V"), Clean(h.SigmaBasis)), style.Width)
 	}
 	if names := h.ChangedDevices(); len(names) > 0 {
 		wrapped(p, "", "  ", style.paint("Changed or mixed up", red)+": "+namesWords(names, shownNames)+": check the serial, measure again.", style.Width)
