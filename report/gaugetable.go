@@ -78,7 +78,12 @@ func gaugeWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
 // gaugeNone says what to measure where no device was put in twice.
 func gaugeNone(s Sheet, g Gauge) string {
 	text := "No device was put in twice in one session: how well the bench repeats is not known from this lot. Put 10 devices in three times each, in random order: gatesill gauge " +
-		Clean(quotedName(s.Lot.Name)) + " --rounds 3 writes one."
+		Clean(quotedName(s.Lot.Name)) + " --rounds 3 writes one. "
+	if len(g.History) > 0 {
+		text += "Rounds on several days do not count for that, each day is a session of its own: what days differ by would be taken for the bench's; the changes between them stand below."
+	} else {
+		text += "All rounds belong in one session: one day, one operator, one fixture; of files without dates those with the same import --session NAME."
+	}
 	if g.Used.Value > 0 {
 		text += fmt.Sprintf(" Used here: %s (%s).", FormatTwoDigits(g.Used.Value, "V"), Clean(g.Used.Basis))
 	}
@@ -363,8 +368,8 @@ func gaugeHistory(p *printer, s *Sheet, h *gauge.History, style Style) {
 		wrapped(p, "", "  ", "Repeatability from the differences: "+FormatTwoDigits(h.FromDiffs, "V")+" (robust).", style.Width)
 	}
 	if isNumber(h.Limit) {
-		wrapped(p, "", "  ", fmt.Sprintf("A device changed when its own change is beyond %s, corrected for %d devices; for one alone 2·√2·sigma is %s (sigma %s: %s).",
-			FormatTwoDigits(h.Limit, "V"), len(h.Changes), FormatTwoDigits(h.LimitOne, "V"), FormatTwoDigits(h.Sigma, "V"), Clean(h.SigmaBasis)), style.Width)
+		wrapped(p, "", "  ", fmt.Sprintf("A device changed when its own change is beyond %s, corrected for %s; for one alone 2·√2·sigma is %s (sigma %s: %s).",
+			FormatTwoDigits(h.Limit, "V"), count(len(h.Changes), "device"), FormatTwoDigits(h.LimitOne, "V"), FormatTwoDigits(h.Sigma, "V"), Clean(h.SigmaBasis)), style.Width)
 	}
 	if names := h.ChangedDevices(); len(names) > 0 {
 		wrapped(p, "", "  ", style.paint("Changed or mixed up", red)+": "+namesWords(names, shownNames)+": check the serial, measure again.", style.Width)
