@@ -22,6 +22,7 @@ type CompareRequest struct {
 	Paired   bool          // by serial
 	Unpaired bool          // never by serial; neither: where serials and values go together
 	Tempco   record.Num    // V/K
+	TempcoU  record.Num    // V/K, its standard uncertainty; not known: a typical share of it
 	Beta     record.Num    // A/V², gain factor of lots whose curves were not measured
 	Fail     bool          // end in [ExitNo] when a lot differs or is outside the margin
 }
@@ -56,6 +57,9 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	}
 	if err := checkTempco(rq.Tempco); err != nil {
 		return err
+	}
+	if u, ok := rq.TempcoU.Get(); ok && !(u > 0 && rq.Tempco.IsKnown()) {
+		return Usage("--tempco -4mV/K --tempco-u 1mV/K", "--tempco-u: must be above 0, and go with --tempco")
 	}
 	if rq.Paired && rq.Unpaired {
 		return Usage("leave one of them out", "--paired and --unpaired exclude each other")
@@ -110,9 +114,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 		if err != nil {
 			return failed("", "the run of lots: %w", err)
 		}
-		if rq.Tempco.IsKnown() {
-			trend.Text = append(trend.Text, "the run of lots and its pairs are as read: the temperature is taken off the shifts against the reference lot only")
-		}
+		trend.Text = append(trend.Text, fmt.Sprintf("the verdicts of the %d lots against lot %s stand each on its own and are not adjusted for their number; the p and intervals of the pairs are", len(sheets), ref.Lot.Name))
 		cl.Trend = &trend
 	}
 	env.detail("%s compared in %v", count(1+len(sheets), "lot"), time.Since(start).Round(time.Millisecond))
@@ -206,6 +208,9 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	for _, s := range []*report.Sheet{ref, cand} {
+		if n := len(s.Devices); n > 0 && !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded }) {
+			return out, failed("gatesill device include "+Quote(s.Devices[0].Name)+" --lot "+Quote(s.Lot.Name), "lot %q: %s excluded", s.Lot.Name, allOf(n))
+		}
 		if !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded && len(d.Sweeps) > 0 }) {
 			return out, failed("gatesill import "+Quote(s.Lot.Name)+" FILE", "lot %q: nothing is measured of it", s.Lot.Name)
 		}
@@ -253,6 +258,14 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 	return out, nil
 }
 
+// allOf names all devices of a lot.
+func allOf(n int) string {
+	if n == 1 {
+		return "its one device is"
+	}
+	return fmt.Sprintf("all %d devices are", n)
+}
+
 // repeatabilityOf is the greater of what is known of the lots' benches, V; NaN where
 // nothing is.
 func repeatabilityOf(ref, cand *report.Sheet, by fit.Key) float64 {
@@ -282,7 +295,7 @@ func optionsOf(ref *report.Sheet, by fit.Key, rq CompareRequest) compare.Options
 	low, high := limitsOf(ref, fit.KeyVgsth) // of V_GS(th), whatever is compared
 	return compare.Options{
 		By: by, Level: rq.Level / 100, Margin: math.NaN(), MarginSet: compare.None, Pairing: rq.pairing(), Repeatability: math.NaN(),
-		Tempco: rq.Tempco.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
+		Tempco: rq.Tempco.Float(), TempcoU: rq.TempcoU.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
 	}
 }
 
