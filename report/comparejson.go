@@ -142,7 +142,7 @@ func compareMembers(s *Sheet) []member {
 		{"counts", map[string]countsDoc{"reference": counts(c.Counts[0]), "candidate": counts(c.Counts[1])}},
 		{"options", options},
 
-		{"sentence", c.Sentence}, {"p", number(c.P)}, {"df", number(c.DF)}, {"raw_shift_V", number(c.Raw)}, {"taken_off_for_temperature_V", number(c.ForTemp)}, {"taken_off_for_temperature_u_V", number(c.TempU)}, {"margin_from", optional(c.MarginFrom)}, {"more_parts_why", optional(c.MoreText)},
+		{"sentence", c.Sentence}, {"p", number(c.P)}, {"df", number(c.DF)}, {"raw_shift_V", number(c.Raw)}, {"taken_off_for_temperature_V", number(c.ForTemp)}, {"taken_off_for_temperature_u_V", number(c.TempU)}, {"margin_from", optional(c.MarginFrom)}, {"more_parts_why", optional(c.MoreText)}, {"which_counts", optional(c.Beside)},
 		{"centre_V", pairDoc{number(c.Centre[0]), number(c.Centre[1])}}, {"sd_V", pairDoc{number(c.SD[0]), number(c.SD[1])}}, {"spread_test", optional(c.SpreadTest)},
 		{"common_error", commonDoc{number(c.Common.U), optional(c.Common.Basis), c.Common.Controls, number(c.Common.Offset), number(c.Common.OffsetU)}},
 		{"paired", pairedDocOf(c.Paired)}, {"curves", bandDocOf(c.Curves)}, {"gain", gainDocOf(c.Gain)},

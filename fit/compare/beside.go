@@ -1,7 +1,9 @@
 package compare
 
 import (
+	"fmt"
 	"math"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/stats"
@@ -27,6 +29,37 @@ func (c *comparing) beside() {
 		c.warn(fit.CodeAboveRange, neverReach(c.ref.counts.Above+c.cand.counts.Above)+
 			": that counts as above every value, and tests that need the values themselves have no number")
 	}
+}
+
+// besideWords says which counts where the verdict without a margin and what stands
+// beside it differ; "" where they do not. A verdict on a margin asks something else.
+func (c *comparing) besideWords() string {
+	o := &c.out
+	alpha := 1 - o.Level
+	var apart, had []string
+	for i, s := range o.Secondary {
+		if i >= 2 || math.IsNaN(s.PAdjusted) { // the first two ask for a shift
+			continue
+		}
+		name, _, _ := strings.Cut(s.Test, ":")
+		had = append(had, name)
+		if s.PAdjusted <= alpha {
+			apart = append(apart, fmt.Sprintf("the test of %s (adjusted %s)", name, pWords(s.PAdjusted)))
+		}
+	}
+	const counts = "; the verdict is that of the primary test alone, which was chosen beforehand: the rest is a reason to measure more"
+	switch {
+	case o.Verdict == NoDifference:
+		if o.Curves != nil && o.Curves.Differs && o.ForTemp == 0 { // the band is without what was taken off for that
+			apart = append(apart, "the band of the curves")
+		}
+		if len(apart) > 0 {
+			return strings.Join(apart, " and ") + " would say that the lots differ" + counts
+		}
+	case o.Verdict == Differs && len(had) > 0 && len(apart) == 0:
+		return "beside it no test of " + strings.Join(had, " or ") + " sees a difference" + counts
+	}
+	return ""
 }
 
 // besideLots compares lots of different devices.

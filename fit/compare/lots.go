@@ -59,6 +59,7 @@ func Lots(reference, candidate Lot, opt Options) (Comparison, error) {
 	c.beside()
 	c.out.Curves = c.curves()
 	c.out.Gain = c.gain()
+	c.out.Beside = c.besideWords()
 	if c.pairs == nil { // of the same devices nothing is to be taken, sorted or sent back
 		c.out.Options = c.goingOn()
 	}
@@ -142,7 +143,9 @@ func (c *comparing) primary() {
 	if p := c.pairs; p != nil {
 		c.out.Test = "20 % trimmed mean of the differences by serial, after Tukey and McLaughlin"
 		c.shift = within(trimmedMean(p.d, 0))
-		c.out.Common, nu = c.commonOf(p.ref, p.cand)
+		if c.out.Common = (Common{U: math.NaN(), OffsetU: math.NaN()}); len(p.d) > 0 {
+			c.out.Common, nu = c.commonOf(p.ref, p.cand)
+		}
 	} else {
 		c.out.Test = "Yuen's test on 20 % trimmed means"
 		c.shift = between(refMean, candMean)
