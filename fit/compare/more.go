@@ -86,11 +86,11 @@ func tells(margin, df float64) float64 {
 // enough is the least number of devices a lot that tells; 0: more than mostDevices.
 func enough(margin, scatter, lots, u float64) int {
 	if lots == 2 && u == 0 {
-		n := max(fewest, stats.YuenEquivalenceSize(0, -margin, margin, scatter, trim, (1-marginLevel)/2, power))
-		if n > mostDevices {
-			n = 0
+		n := stats.YuenEquivalenceSize(0, -margin, margin, scatter, trim, (1-marginLevel)/2, power)
+		if n == 0 || n > mostDevices {
+			return 0
 		}
-		return n
+		return max(fewest, n)
 	}
 	chance := func(n int) float64 {
 		e := estimate{}
