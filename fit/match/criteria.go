@@ -35,7 +35,6 @@ type problem struct {
 	step     float64     // V
 	items    []item
 	left     []LeftOver // devices that do not take part
-	warnings []fit.Warning
 
 	complementary bool
 }
@@ -151,6 +150,9 @@ func newProblem(members []Member, opt Options) (*problem, error) {
 	}
 	p.packages(why)
 	p.convert()
+	if !p.weigh() {
+		return nil, fmt.Errorf("%w: with them differences come to more than %g V, too much to be summed up in whole nanovolts", ErrWeights, float64(mostDistance)/nano)
+	}
 	return p, nil
 }
 
@@ -352,7 +354,6 @@ func (p *problem) convert() {
 	for c := range by {
 		p.limit[c] = p.limitOf(c, by[c].Within)
 	}
-	p.weigh()
 }
 
 func microvolts(v float64) int64 { return int64(math.Round(v*1e6)) * (nano / 1e6) }
@@ -394,8 +395,11 @@ func (p *problem) limitOf(c int, within float64) int64 {
 	return int64(math.Round(within*nano)) + p.slack(c)
 }
 
-// weigh makes the coordinates of the distance.
-func (p *problem) weigh() {
+// mostDistance is the greatest distance that is summed up.
+const mostDistance = int64(1e12)
+
+// weigh makes the coordinates of the distance; false: they are too great.
+func (p *problem) weigh() bool {
 	by := p.opt.By
 	worth := make([]float64, len(by)) // volts (as units) of distance for a unit of difference
 	for c := range by {
@@ -417,12 +421,17 @@ func (p *problem) weigh() {
 				if worth[c] == 1 {
 					s[k] = p.at[d][k]
 				} else if worth[c] > 0 {
-					s[k] = int64(math.Round(worth[c] * float64(p.at[d][k])))
+					x := worth[c] * float64(p.at[d][k]-p.at[0][k])
+					if !(math.Abs(x) < float64(mostDistance)) {
+						return false
+					}
+					s[k] = int64(math.Round(x))
 				}
 			}
 		}
 		p.scaled = append(p.scaled, s)
 	}
+	return len(p.used) == 0 || p.reach() < mostDistance
 }
 
 // part is the difference of two devices in one criterion, of coordinates x.

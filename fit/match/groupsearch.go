@@ -35,7 +35,12 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 	a.most, numbered = g.number(all, p.mostGroups(g), brief())
 	low := p.simpleBound(g)
 	if g.total > low.total && len(g.sets) > 0 {
-		g.priced(a, &low, len(g.sets), share(0.7), share(0.85))
+		if g.n <= wholeMax {
+			g.priced(a, &low, len(g.sets), share(0.7), share(0.85))
+		} else {
+			g.cellPrices(a, &low, len(g.sets), p.cells(g), g.by(share(0.7)))
+			g.improve(60, g.by(share(0.97)))
+		}
 	}
 	if all != nil && g.total > low.total {
 		if text, ok := g.settle(all, brief()); ok {

@@ -231,8 +231,9 @@ func (m *master) parted(cols []int, x []float64) (i, j int32) {
 	i, j = -1, -1
 	far := 0.49 // from a half
 	for key, s := range sum {
-		d := math.Abs(s - 0.5)
-		if d < far-1e-9 || d < far+1e-9 && i >= 0 && (key[0] < i || key[0] == i && key[1] < j) {
+		// In steps, so that the choice does not hang on the order of the map.
+		d := math.Round(math.Abs(s-0.5)*1e6) / 1e6
+		if d < far || d == far && i >= 0 && (key[0] < i || key[0] == i && key[1] < j) {
 			far, i, j = d, key[0], key[1]
 		}
 	}
