@@ -84,10 +84,7 @@ func (g *groups) cellPrices(a *answer, low *simple, z int, cells [][]int, over f
 			v[i] = best[x]
 		}
 	}
-	whole := make([]int64, g.n)
-	for i := range v {
-		whole[i] = int64(math.Floor(v[i]))
-	}
+	whole := inPrices(v)
 	for worse := 0; worse < 3; {
 		t, found, ok := g.bound(whole, z, over)
 		if !ok {
@@ -103,7 +100,7 @@ func (g *groups) cellPrices(a *answer, low *simple, z int, cells [][]int, over f
 			return
 		}
 		for _, c := range found {
-			unpaid := -c.cost
+			unpaid := -c.cost * inPrice
 			for _, i := range c.items {
 				unpaid += whole[i]
 			}

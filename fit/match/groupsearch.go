@@ -27,10 +27,17 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 	if p.opt.Aim == Worst {
 		g.tighten(share(0.35))
 	}
+	if g.few() {
+		g.exactFor(p.opt.Aim, a)
+		return a
+	}
 	var numbered string
 	var all []column
-	if g.ban && len(g.sets) > 0 {
+	switch {
+	case g.ban:
 		all = g.all(mostColumns, g.by(share(0.3)))
+	default:
+		all = g.all(fewColumns, g.by(share(0.3)))
 	}
 	a.most, numbered = g.number(all, p.mostGroups(g), brief())
 	low := p.simpleBound(g)
@@ -311,11 +318,7 @@ func (m *master) generate(add func(column), over func() bool, rounds int, enough
 				trial[i] = 0.5*v[i] + 0.5*center[i]
 			}
 		}
-		whole := make([]int64, len(v))
-		for i := range v {
-			whole[i] = int64(math.Floor(trial[i]))
-		}
-		t, found, ok := m.g.bound(whole, m.z, over)
+		t, found, ok := m.g.bound(inPrices(trial), m.z, over)
 		if ok && t > best {
 			best, center = t, trial
 		}
