@@ -154,6 +154,7 @@ func GaugeJSON(w io.Writer, s Sheet, g Gauge) error {
 	return writeObject(w,
 		member{"schema", Schema}, member{"lot", s.Lot.Name}, member{"quantity", string(g.By)}, member{"at_A", number(current)},
 		member{"repeatability", repeatabilityDocOf(st.Repeatability)},
+		member{"left_out", append([]string{}, st.Odd...)},
 		member{"more_devices_needed", st.MoreDevices}, member{"more_repeats_needed", st.MoreRepeats},
 		member{"reproducibility", factors},
 		member{"difference_that_counts_V", number(st.Repeatability.Counts())}, member{"difference_95_V", number(st.Repeatability.Counts95())},

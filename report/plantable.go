@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"strings"
 
 	"gatesill/fit/plan"
 )
@@ -78,6 +79,14 @@ func Chance(x float64) string {
 // share writes a share that was given, or one that is compared with such.
 func share(x float64) string { return fmt.Sprintf("%.3g %%", 100*x) }
 
+// given writes a voltage that was given, or that followed from what was.
+func given(x float64) string {
+	if text := FormatGiven(x, "V"); len(text) <= 9 {
+		return text
+	}
+	return about(x)
+}
+
 // about writes a voltage that was computed, with two or three digits.
 func about(x float64) string {
 	if !isNumber(x) {
@@ -88,19 +97,17 @@ func about(x float64) string {
 }
 
 func (p *planPrinter) find(f *plan.Find) {
-	bad := share(f.Bad) + " are bad"
-	where := "Where " + bad
+	where := "Where " + share(f.Bad) + " are bad"
 	if f.BadCount > 0 {
-		bad = fmt.Sprintf("%d of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 		where = fmt.Sprintf("With %d bad of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 	}
 	risk := 1 - f.Confidence
 	switch {
 	case f.N > 0 && f.Needed > 0:
-		p.answer("%s, %s measured find at least one %s of the time and miss all %s of it.", where, count(f.N, "part"), Chance(f.Finds), Chance(1-f.Finds))
-		p.say("For a risk of missing all of %s measure %d.", share(risk), f.Needed)
+		p.answer("%s, %s measured find at least one %s of the time; %s of the time they miss them all.", where, count(f.N, "part"), Chance(f.Finds), Chance(1-f.Finds))
+		p.say("For a risk of %s of missing them all measure %d.", share(risk), f.Needed)
 	case f.Needed > 0:
-		p.answer("%s, measure %d to find at least one with a risk of missing all of %s.", where, f.Needed, share(risk))
+		p.answer("%s, measure %d to find at least one, at a risk of %s of missing them all.", where, f.Needed, share(risk))
 		if f.BadCount > 0 {
 			p.say("Should all %d be good, fewer than %d of %d are bad, at %s confidence.", f.Needed, f.BadCount, f.Of, share(f.Confidence))
 		} else {
@@ -171,12 +178,12 @@ func (p *planPrinter) zeroTable(f *plan.Find) {
 	}
 }
 
-// spread says which standard deviation was planned with.
+// spreadWords says which standard deviation was planned with.
 func spreadWords(sd float64, l plan.Lot) string {
 	if l.Name != "" {
-		return fmt.Sprintf("sd %s (%s of %s)", about(sd), count(l.N, "device"), l.Name)
+		return fmt.Sprintf("sd %s of %s from %s of %s", about(sd), l.Of, count(l.N, "device"), l.Name)
 	}
-	return "sd " + FormatGiven(sd, "V")
+	return "sd " + given(sd)
 }
 
 func (p *planPrinter) shift(s *plan.Shift) {
@@ -186,29 +193,38 @@ func (p *planPrinter) shift(s *plan.Shift) {
 		seen = s.Power
 	}
 	if isNumber(seen) {
-		p.answer("%d of either lot see a shift of %s %s of the time (%s, at %s confidence).", s.N, FormatGiven(s.Shift, "V"), Chance(s.Power), sd, share(s.Confidence))
+		p.answer("%d of either lot see a shift of %s %s of the time (%s, at %s confidence).", s.N, given(s.Shift), Chance(s.Power), sd, share(s.Confidence))
 	}
 	switch {
 	case s.TooMany:
-		p.answer("A shift of %s would need more than a million devices of either lot (%s).", FormatGiven(s.Shift, "V"), sd)
+		p.answer("A shift of %s would need more than a million devices of either lot (%s).", given(s.Shift), sd)
 	case s.Needed > 0 && s.N > 0:
 		p.say("For %s (a risk of missing it of %s) measure %d of either lot.", share(1-s.Risk), share(s.Risk), s.Needed)
 	case s.Needed > 0:
-		p.answer("To see a shift of %s, measure %d of either lot.", FormatGiven(s.Shift, "V"), s.Needed)
+		p.answer("To see a shift of %s, measure %d of either lot.", given(s.Shift), s.Needed)
 		p.say("With %s it is then seen %s of the time (risk of missing it %s) at %s confidence.", sd, share(1-s.Risk), share(s.Risk), share(s.Confidence))
 	}
-	p.reaches("smallest shift seen", s.N, s.Smallest, sd)
-	p.trimming(s.NeededT, s.Needed)
-	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	if s.Lot.N < fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
+	p.reaches("smallest shift seen", s.N, s.Smallest, sd, s.Needed == 0)
+	p.trimming(s.NeededT, s.Needed, s.N, s.PowerT)
+	if s.Lot.N >= fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
 }
 
-// reaches is a table of what N devices can do.
-func (p *planPrinter) reaches(what string, n int, list []plan.Reach, sd string) {
+// reaches is a table of what n devices can do; alone where nothing stands above.
+func (p *planPrinter) reaches(what string, n int, list []plan.Reach, sd string, alone bool) {
 	if len(list) == 0 {
 		return
 	}
-	p.line("")
-	p.say("What %d of either lot can do (%s):", n, sd)
+	if alone {
+		p.answer("What %d of either lot can do (%s):", n, sd)
+	} else {
+		p.line("")
+		p.say("What %d of either lot can do (%s):", n, sd)
+	}
 	chance, v := column{head: "of the time"}, column{head: what}
 	for _, r := range list {
 		chance.cells = append(chance.cells, share(r.Chance))
@@ -217,15 +233,27 @@ func (p *planPrinter) reaches(what string, n int, list []plan.Reach, sd string) 
 	p.table(chance, v)
 }
 
-// trimming says what the robust comparison costs.
-func (p *planPrinter) trimming(plain, needed int) {
-	p.line("")
+// trimming says what the robust comparison costs: how many plain means would
+// take, and what n would do by them.
+func (p *planPrinter) trimming(plain, needed, n int, chance float64) {
+	text := "Lots are compared without the lowest and highest fifth of each, so that single devices far off do not mislead; all values are taken for normal."
+	var by []string
 	if needed > plain && plain > 0 {
-		p.say("Lots are compared without the lowest and highest fifth of each, so that single devices far off do not mislead; by plain means, with all values normal, it would be %d.", plain)
-		return
+		by = append(by, fmt.Sprintf("%d would do", plain))
 	}
-	p.say("Lots are compared without the lowest and highest fifth of each; values are taken for normal.")
+	if n > 0 && isNumber(chance) {
+		by = append(by, fmt.Sprintf("%d do it %s of the time", n, Chance(chance)))
+	}
+	if len(by) > 0 {
+		text += " By plain means " + strings.Join(by, ", and ") + "."
+	}
+	p.line("")
+	p.say("%s", text)
 }
+
+// fewForSD is the number of devices below which that their standard deviation is known
+// badly is said right behind the answer: of ten the upper bound is 1.5 times the sd.
+const fewForSD = 10
 
 // uncertain says how far the standard deviation of a lot can be trusted.
 func (p *planPrinter) uncertain(l plan.Lot, high float64, neededHigh, needed int) {
@@ -236,19 +264,23 @@ func (p *planPrinter) uncertain(l plan.Lot, high float64, neededHigh, needed int
 	if neededHigh > 0 {
 		n = itoa(neededHigh)
 	}
+	if l.N < fewForSD {
+		p.say("Caution: from only %s the sd is known badly. It may be up to %s (90 %% confidence); then %s are needed.", count(l.N, "device"), about(high), n)
+		return
+	}
 	p.say("The sd of %s may be up to %s (90 %% confidence); then %s are needed.", count(l.N, "device"), about(high), n)
 }
 
 func (p *planPrinter) same(s *plan.Same) {
 	sd := spreadWords(s.SD, s.Lot)
-	margin := FormatGiven(s.Margin, "V")
+	margin := given(s.Margin)
 	truth := "if there is no shift at all"
 	if s.Shift != 0 {
-		truth = "if the true shift is " + FormatGiven(s.Shift, "V")
+		truth = "if the true shift is " + given(s.Shift)
 	}
 	switch {
-	case s.Hopeless:
-		p.answer("%d of either lot cannot show it: they would, %s, %s of the time.", s.Few, truth, Chance(s.Chance))
+	case s.Hopeless && s.N > 0:
+		p.answer("%d of either lot cannot show that the shift is within ±%s (%s): %s they would %s of the time.", s.Few, margin, sd, truth, Chance(s.Chance))
 	case s.N > 0:
 		p.answer("%d of either lot show that the shift is within ±%s %s of the time, %s (%s).", s.N, margin, Chance(s.Chance), truth, sd)
 	}
@@ -260,23 +292,16 @@ func (p *planPrinter) same(s *plan.Same) {
 	default:
 		p.answer("To show that two lots are alike within ±%s, measure %d of either lot.", margin, s.Needed)
 		p.say("With %s it is then shown %s of the time (risk of failing %s), %s. The %s interval of the shift has to lie within the margin.", sd, share(1-s.Risk), share(s.Risk), truth, share(s.Level))
+		if s.Hopeless {
+			p.say("As few as %d of either lot would show it only %s of the time.", s.Few, Chance(s.Chance))
+		}
 	}
-	p.reaches("smallest margin shown", s.N, s.Smallest, sd)
-	p.trimming(s.NeededT, s.Needed)
-	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
-}
-
-// doubts says where values are not normal.
-func (p *planPrinter) doubts(n plan.Normality, l plan.Lot) {
-	if n.Doubts {
-		p.line("")
-		p.say("Caution: the values of %s are not normal (Anderson-Darling, p %s); what rests on that does not hold for them.", l.Name, pValue(n.P))
+	if s.Lot.N < fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
 	}
-}
-
-func pValue(x float64) string {
-	if x < 0.0001 {
-		return "below 0.0001"
+	p.reaches("smallest margin shown", s.N, s.Smallest, sd, false)
+	p.trimming(s.NeededT, s.Needed, s.N, s.ChanceT)
+	if s.Lot.N >= fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
 	}
-	return fmt.Sprintf("%.2g", x)
 }

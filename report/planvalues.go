@@ -42,28 +42,31 @@ func (p *planPrinter) cover(c *plan.Cover) {
 	case c.FreeBoth == 0:
 		p.answer("More than a thousand million parts would be needed for limits that hold %s whatever the distribution.", what)
 	default:
-		p.answer("Measure %d: between the least and the greatest lies %s, whatever the distribution.", c.FreeBoth, what)
+		p.answer("Measure %d: between the least and the greatest lies at least %s, whatever the distribution.", c.FreeBoth, what)
 		p.say("For one limit alone measure %d: beyond the least (or the greatest) lies no more than %s.", c.FreeOne, share(1-c.Share))
 		p.line("")
-		p.say("Where values are normal fewer do, with wider limits, mean ± k sd:")
+		p.say("Where values are normal fewer do; the limits are then mean ± k sd:")
 		p.factors(c.Factors)
 	}
 	if c.N > 0 {
 		p.line("")
 		p.free(c)
 	}
-	p.doubts(c.Normality, c.Lot)
 }
 
 func (p *planPrinter) coverLot(c *plan.Cover, what string) {
-	p.answer("Limits that hold %s, from %s of %s:", what, count(c.Lot.N, "device"), c.Lot.Name)
+	if len(c.Intervals) == 0 {
+		p.answer("%s: no limits that hold %s, %s.", c.Lot.Name, what, c.Declined)
+		return
+	}
+	p.answer("Limits of %s that hold %s, from %s of %s:", c.Lot.Of, what, count(c.Lot.N, "device"), c.Lot.Name)
 	rule, low, high := column{head: "by"}, column{head: "low"}, column{head: "high"}
 	for _, iv := range c.Intervals {
 		name := "mean ± " + factor(iv.K) + " sd"
 		if iv.Free {
 			name = "least and greatest"
-			if isNumber(iv.Low) && c.BlocksBoth > 2 {
-				name = fmt.Sprintf("values, %d left out", c.BlocksBoth-2)
+			if c.BlocksBoth > 2 {
+				name = fmt.Sprintf("its values, %d left out", c.BlocksBoth-2)
 			}
 		}
 		rule.cells = append(rule.cells, name)
@@ -72,7 +75,11 @@ func (p *planPrinter) coverLot(c *plan.Cover, what string) {
 	}
 	p.table(rule, low, high)
 	p.line("")
-	p.say("mean ± k sd is for normal values; the other line holds whatever the distribution.")
+	if c.Declined != "" {
+		p.say("None by mean ± k sd: %s.", c.Declined)
+		return
+	}
+	p.say("mean ± k sd is for normal values.")
 }
 
 // withDigits writes a voltage with the digits that the uncertainty u allows.
@@ -165,13 +172,8 @@ func indexGiven(x float64) string { return fmt.Sprintf("%.4g", x) }
 
 func (p *planPrinter) capabilityLot(c *plan.Capability, conf string) {
 	switch {
-	case c.TooFew:
-		p.answer("No capability is stated: %s has %s with a value, and fewer than %d say too little.", c.Lot.Name, count(c.Lot.N, "device"), plan.FewestCapable)
-		if isNumber(c.BoundOf) {
-			p.say("What they prove at %s confidence is a Ppk of %s.", conf, index(c.BoundOf))
-		}
-	case !isNumber(c.Index.Cpk):
-		p.answer("%s: no capability, its values have no spread.", c.Lot.Name)
+	case c.Declined != "":
+		p.answer("%s: no capability is stated, %s.", c.Lot.Name, c.Declined)
 	default:
 		word := "not proven"
 		if c.Proven {
@@ -183,7 +185,6 @@ func (p *planPrinter) capabilityLot(c *plan.Capability, conf string) {
 		}
 	}
 	p.say("V_GS(th) against %s.", limitWords(c.Low, c.High))
-	p.doubts(c.Normality, c.Lot)
 }
 
 func limitWords(low, high float64) string {
@@ -222,13 +223,19 @@ func (p *planPrinter) accept(a *plan.Accept) {
 		}
 		p.table(bad, acc, risk)
 	}
-	p.line("")
-	p.say("95 of 100 lots with %s bad are accepted, 10 of 100 with %s.", Chance(a.Often), Chance(a.Seldom))
+	if a.Needed > a.Plan.N {
+		p.line("")
+		p.say("To keep both risks (%s and %s) measure %d.", share(a.GoodRisk), share(a.Risk), a.Needed)
+	}
+	if !isNumber(a.AtGood) || !isNumber(a.AtBad) {
+		p.line("")
+		p.say("95 of 100 lots with %s bad are accepted, 10 of 100 with %s.", Chance(a.Often), Chance(a.Seldom))
+	}
 	if a.Lot.Name == "" {
 		p.line("")
 		p.curve(a)
+		p.line("")
 		if a.CountN > 0 {
-			p.line("")
 			p.say("Counting bad parts instead would take %d, of which %d may be bad.", a.CountN, a.CountMost)
 		}
 		p.say("For normal values. With two limits the shares estimated beyond both are added, and may together be no more than at one limit.")
@@ -239,6 +246,9 @@ func (p *planPrinter) decision(a *plan.Accept, k string) {
 	j := a.Judgement
 	if a.Decision == plan.Undecided {
 		p.answer("%s: not decided, %s.", a.Lot.Name, a.Undecided)
+		if isNumber(a.BadWithThose) {
+			p.say("--n %d decides with those; a lot with %s bad is then accepted %s of the time.", a.Lot.N, share(a.Bad), Chance(a.BadWithThose))
+		}
 	} else {
 		p.answer("%s: %s (%s, V_GS(th) against %s).", a.Lot.Name, string(a.Decision), count(a.Lot.N, "device"), limitWords(a.Low, a.High))
 	}
@@ -256,5 +266,4 @@ func (p *planPrinter) decision(a *plan.Accept, k string) {
 	if a.SigmaDoubt {
 		p.say("Caution: it spreads more (sd %s) than the known sigma of %s lets expect.", about(a.Lot.SD), FormatGiven(a.KnownSigma, "V"))
 	}
-	p.doubts(a.Normality, a.Lot)
 }

@@ -2,9 +2,9 @@ package main
 
 import (
 	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
 
 	"gatesill/cmd/internal/job"
-	"gatesill/store/record"
 )
 
 func planCmd(env *job.Env) *cobra.Command {
@@ -26,7 +26,7 @@ deviation, the size or the values from a lot in the store.`,
 	}
 	for _, k := range []struct {
 		kind, short, long, example string
-		flags                      []string
+		flags                      func(fs *pflag.FlagSet, rq *job.PlanRequest)
 	}{
 		{
 			"find", "Find bad parts: how many to look at",
@@ -34,7 +34,13 @@ deviation, the size or the values from a lot in the store.`,
 were good (exact: hypergeometric with --of, else binomial). Without --bad and --n
 it shows the lengths of all-good samples. --from LOT takes its quantity for --of.`,
 			"  gatesill plan find\n  gatesill plan find --bad 10% --risk 10%\n  gatesill plan find --n 22 --of 200",
-			[]string{"bad", "of", "risk", "n", "found", "from"},
+			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
+				badFlag(fs, rq, "bad parts assumed: `10%` of them, or a number of those in a lot of --of")
+				fs.Var(countFlag{&rq.Of, 1}, "of", "parts in the lot (default: so many that it does not matter)")
+				fs.Var(shareFlag{&rq.Risk}, "risk", "of missing all bad parts (default 5%)")
+				nFlag(fs, rq)
+				fs.Var(countFlag{&rq.Found, 0}, "found", "bad ones among the --n measured (default 0)")
+			},
 		},
 		{
 			"shift", "See a shift between two lots",
@@ -42,7 +48,13 @@ it shows the lengths of all-good samples. --from LOT takes its quantity for --of
 see it and which shifts they see at all. The comparison is that of gatesill
 compare, on means without the lowest and highest fifth.`,
 			"  gatesill plan shift --shift 50mV --sd 80mV\n  gatesill plan shift --sd 80mV --n 10\n  gatesill plan shift --shift 30mV --from bag1",
-			[]string{"shift", "sd", "risk", "confidence", "n", "from"},
+			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
+				num(fs, &rq.Shift, "shift", "V", "true shift that must not be missed")
+				sdFlag(fs, rq)
+				fs.Var(shareFlag{&rq.Risk}, "risk", "of not seeing the shift (default 20%)")
+				confidenceFlag(fs, rq)
+				nFlag(fs, rq)
+			},
 		},
 		{
 			"same", "Show that two lots are alike within a margin",
@@ -50,7 +62,13 @@ compare, on means without the lowest and highest fifth.`,
 90 % interval of the shift within it. The margin has to be set before measuring.
 --from LOT takes the standard deviation, and the margin that was set for the lot.`,
 			"  gatesill plan same --margin 50mV --sd 80mV\n  gatesill plan same --margin 50mV --sd 80mV --n 6\n  gatesill plan same --margin 10% --from bag1",
-			[]string{"margin", "sd", "shift", "risk", "n", "from"},
+			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
+				fs.Var(amountFlag{&rq.Margin, []string{"V", "%", "A"}}, "margin", "largest shift that does not matter: 50mV; of the idle current 10% or 25mA with --from")
+				sdFlag(fs, rq)
+				num(fs, &rq.Shift, "shift", "V", "true shift assumed (default none)")
+				fs.Var(shareFlag{&rq.Risk}, "risk", "of failing to show it (default 20%)")
+				nFlag(fs, rq)
+			},
 		},
 		{
 			"cover", "Limits that hold a share of a lot",
@@ -58,7 +76,11 @@ compare, on means without the lowest and highest fifth.`,
 of the lot, and the factors k of mean ± k sd for normal values. --from LOT gives
 the intervals of its gate voltages.`,
 			"  gatesill plan cover\n  gatesill plan cover --share 99% --confidence 90% --n 40\n  gatesill plan cover --from bag1",
-			[]string{"share", "confidence", "n", "from"},
+			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
+				fs.Var(shareFlag{&rq.Share}, "share", "share of the lot to hold (default 95%)")
+				confidenceFlag(fs, rq)
+				nFlag(fs, rq)
+			},
 		},
 		{
 			"capability", "Prove a capability index",
@@ -66,7 +88,13 @@ the intervals of its gate voltages.`,
 when that is found, with --n what they have to show. --from LOT gives the Ppk of
 its V_GS(th) against the limits of the part, from 25 devices on.`,
 			"  gatesill plan capability --ppk 1.33 --expect 1.67\n  gatesill plan capability --ppk 1.33 --n 50\n  gatesill plan capability --from bag1",
-			[]string{"ppk", "expect", "confidence", "n", "from", "limit-low", "limit-high"},
+			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
+				num(fs, &rq.Ppk, "ppk", "", "index to be proven (default 1.33)")
+				num(fs, &rq.Expect, "expect", "", "index that is expected to be found")
+				confidenceFlag(fs, rq)
+				nFlag(fs, rq)
+				limitFlags(fs, rq)
+			},
 		},
 		{
 			"accept", "Accept lots by mean and spread of a sample",
@@ -76,74 +104,53 @@ refused; with --n, or --n and --k, how that plan does. The operating
 characteristic is drawn; -o FILE.svg writes it. --from LOT decides on that lot by
 its V_GS(th) and the limits of the part.`,
 			"  gatesill plan accept --good 1% --bad 5%\n  gatesill plan accept --n 30 --k 1.86 -o plan.svg\n  gatesill plan accept --good 1% --bad 10% --from bag1",
-			[]string{"good", "good-risk", "bad", "risk", "sigma-known", "n", "k", "from", "limit-low", "limit-high", "output"},
+			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
+				fs.Var(shareFlag{&rq.Good}, "good", "share of bad parts in a lot that should be accepted")
+				fs.Var(shareFlag{&rq.GoodRisk}, "good-risk", "of refusing such a lot (default 5%)")
+				badFlag(fs, rq, "share of bad parts in a lot that should be refused, `5%`")
+				fs.Var(shareFlag{&rq.Risk}, "risk", "of accepting such a lot (default 10%)")
+				num(fs, &rq.SigmaKnown, "sigma-known", "V", "standard deviation, known beforehand")
+				nFlag(fs, rq)
+				num(fs, &rq.K, "k", "", "factor of a plan that is there already")
+				limitFlags(fs, rq)
+				fs.StringVarP(&rq.Output, "output", "o", "", "`FILE.svg` to draw the operating characteristic in, - for stdout")
+				fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 when the lot of --from is not accepted")
+			},
 		},
 	} {
-		cmd.AddCommand(planKind(env, k.kind, k.short, k.long, k.example, k.flags))
+		var rq job.PlanRequest
+		c := &cobra.Command{
+			Use: k.kind, Short: k.short, Long: k.long, Example: k.example, Args: exactly(0),
+			RunE: func(cmd *cobra.Command, _ []string) error { return job.Plan(cmd.Context(), env, k.kind, rq) },
+		}
+		c.Flags().SortFlags = false
+		k.flags(c.Flags(), &rq)
+		c.Flags().StringVar(&rq.From, "from", "", "`LOT` of the store to take values from")
+		if err := c.RegisterFlagCompletionFunc("from", lots(env, false)); err != nil {
+			panic(err) // the flag is not there
+		}
+		cmd.AddCommand(c)
 	}
 	return cmd
 }
 
-func planKind(env *job.Env, kind, short, long, example string, flags []string) *cobra.Command {
-	var rq job.PlanRequest
-	c := &cobra.Command{
-		Use: kind, Short: short, Long: long, Example: example, Args: exactly(0),
-		RunE: func(cmd *cobra.Command, _ []string) error { return job.Plan(cmd.Context(), env, kind, rq) },
-	}
-	fs := c.Flags()
-	fs.SortFlags = false
-	riskUse := map[string]string{
-		"find": "of missing all bad parts (default 5%)", "shift": "of not seeing the shift (default 20%)",
-		"same": "of failing to show it (default 20%)", "accept": "of accepting a bad lot (default 10%)",
-	}[kind]
-	badUse := "bad parts assumed: a share, or a number in a lot of --of"
-	if kind == "accept" {
-		badUse = "share of bad parts in a lot that should be refused"
-	}
-	shiftUse := "true shift that must not be missed"
-	if kind == "same" {
-		shiftUse = "true shift assumed (default none)"
-	}
-	add := map[string]func(){
-		"n":           func() { fs.Var(countFlag{&rq.N}, "n", "parts measured; what can they show") },
-		"of":          func() { fs.Var(countFlag{&rq.Of}, "of", "parts in the lot (default: so many that it does not matter)") },
-		"found":       func() { fs.Var(countFlag{&rq.Found}, "found", "bad ones among the --n measured (default 0)") },
-		"bad":         func() { fs.StringVar(&rq.Bad, "bad", "", badUse+": `10%`") },
-		"good":        func() { share(c, &rq.Good, "good", "share of bad parts in a lot that should be accepted") },
-		"good-risk":   func() { share(c, &rq.GoodRisk, "good-risk", "of refusing a good lot (default 5%)") },
-		"risk":        func() { share(c, &rq.Risk, "risk", riskUse) },
-		"share":       func() { share(c, &rq.Share, "share", "share of the lot to hold (default 95%)") },
-		"confidence":  func() { share(c, &rq.Confidence, "confidence", "confidence (default 95%)") },
-		"shift":       func() { num(fs, &rq.Shift, "shift", "V", shiftUse) },
-		"sd":          func() { num(fs, &rq.SD, "sd", "V", "standard deviation between devices of one lot") },
-		"sigma-known": func() { num(fs, &rq.SigmaKnown, "sigma-known", "V", "standard deviation, known beforehand") },
-		"margin": func() {
-			fs.Var(amountFlag{&rq.Margin, []string{"V", "%", "A"}}, "margin", "largest shift that does not matter: 50mV; of the idle current 10% or 25mA with --from")
-		},
-		"ppk":        func() { num(fs, &rq.Ppk, "ppk", "", "index to be proven (default 1.33)") },
-		"expect":     func() { num(fs, &rq.Expect, "expect", "", "index that is expected to be found") },
-		"k":          func() { num(fs, &rq.K, "k", "", "factor of a plan that is there already") },
-		"limit-low":  func() { num(fs, &rq.LimitLow, "limit-low", "V", "lower limit (default: that of the part)") },
-		"limit-high": func() { num(fs, &rq.LimitHigh, "limit-high", "V", "upper limit (default: that of the part)") },
-		"from":       func() { fs.StringVar(&rq.From, "from", "", "`LOT` of the store to take values from") },
-		"output": func() {
-			fs.StringVarP(&rq.Output, "output", "o", "", "`FILE.svg` to draw the operating characteristic in, - for stdout")
-		},
-	}
-	for _, f := range flags {
-		add[f]()
-		if f == "from" {
-			if err := c.RegisterFlagCompletionFunc("from", func(cmd *cobra.Command, _ []string, _ string) ([]string, cobra.ShellCompDirective) {
-				return job.Names(cmd.Context(), env, ""), cobra.ShellCompDirectiveNoFileComp
-			}); err != nil {
-				panic(err) // the flag is not there
-			}
-		}
-	}
-	return c
+func nFlag(fs *pflag.FlagSet, rq *job.PlanRequest) {
+	fs.Var(countFlag{&rq.N, 1}, "n", "parts measured: what can they show")
 }
 
-// share adds a flag for a share, a risk or a confidence.
-func share(c *cobra.Command, dst *record.Num, name, usage string) {
-	c.Flags().Var(shareFlag{dst}, name, usage)
+func badFlag(fs *pflag.FlagSet, rq *job.PlanRequest, usage string) {
+	fs.StringVar(&rq.Bad, "bad", "", usage)
+}
+
+func sdFlag(fs *pflag.FlagSet, rq *job.PlanRequest) {
+	num(fs, &rq.SD, "sd", "V", "standard deviation between devices of one lot")
+}
+
+func confidenceFlag(fs *pflag.FlagSet, rq *job.PlanRequest) {
+	fs.Var(shareFlag{&rq.Confidence}, "confidence", "confidence (default 95%)")
+}
+
+func limitFlags(fs *pflag.FlagSet, rq *job.PlanRequest) {
+	num(fs, &rq.LimitLow, "limit-low", "V", "lower limit for the lot of --from (default: that of the part)")
+	num(fs, &rq.LimitHigh, "limit-high", "V", "upper limit for the lot of --from (default: that of the part)")
 }

@@ -57,7 +57,10 @@ one sentence each: those that are broken or leak, and those outside the family b
 gate voltage, by gain (gain factor, transconductance at the idle current) or by
 the whole curve, where it is not what threshold and gain let expect. The default
 limits depend on the size of the lot and on how many of these its devices have,
-so that at most 2 % of clean lots get any false flag.`,
+so that at most 2 % of clean lots get any false flag. Two populations are told by
+a test that fewer than 1 % of lots of one population pass. Where the part has
+limits, every device gets a verdict by the guard band stored with the lot (lot
+edit --guard), and the lot its Ppk and tolerance interval.`,
 		Example: `  gatesill spread bag1
   gatesill spread bag1 --limit 6 --fail --json`,
 		Args: exactly(1),
@@ -110,11 +113,12 @@ uncertainty stays in its bin and is marked maybe, with the bin across the edge.`
 func reportCmd(env *job.Env) *cobra.Command {
 	var o job.SheetOptions
 	var out, reference string
+	var rq job.CompareRequest
 	cmd := &cobra.Command{
 		Use: "report LOT -o FILE", Short: "Write the lot as one self-contained page",
 		Long: `Writes one HTML file with curves, thresholds, bins, flags, conditions and
 cautions, to read, print or keep; with --compare also the comparison with a
-reference lot. It loads nothing from anywhere, and the same data gives the same
+reference lot, by the same flags as those of gatesill compare. It loads nothing from anywhere, and the same data gives the same
 bytes.`,
 		Example: "  gatesill report bag1 -o bag1.html\n  gatesill report 2612 -o 2612.html --compare 2431",
 		Args:    exactly(1),
@@ -122,12 +126,24 @@ bytes.`,
 			if out == "" {
 				return job.Usage("gatesill report "+job.Quote(args[0])+" -o FILE.html", "report: no output file")
 			}
-			return job.Report(cmd.Context(), env, args[0], out, reference, o)
+			if reference == "" {
+				for _, name := range comparedOnly {
+					if cmd.Flags().Changed(name) {
+						return job.Usage("gatesill report "+job.Quote(args[0])+" -o FILE.html --compare LOT", "--%s: says how lots are compared, and --compare names none", name)
+					}
+				}
+			}
+			if err := marginGiven(cmd, &rq); err != nil {
+				return err
+			}
+			return job.Report(cmd.Context(), env, args[0], out, reference, o, rq)
 		},
 		ValidArgsFunction: lots(env, false),
 	}
 	cmd.Flags().StringVarP(&out, "output", "o", "", "`FILE` to write, - for stdout")
-	cmd.Flags().StringVar(&reference, "compare", "", "reference `LOT` to hold it against")
+	cmd.Flags().StringVar(&reference, "compare", "", "reference `LOT` to hold it against; only with it:")
+	cmd.Flags().SortFlags = false
+	comparedFlags(cmd.Flags(), &rq)
 	if err := cmd.RegisterFlagCompletionFunc("compare", manyLots(env)); err != nil {
 		panic(err) // the flag is not there
 	}

@@ -65,7 +65,7 @@ func TestFirstAgain(t *testing.T) {
 // devices put in again where a single round does not show it.
 func TestDriftFalseAlarms(t *testing.T) {
 	r := rand.New(rand.NewPCG(13, 8))
-	const runs = 400
+	const runs = 250
 	count := func(b bench) (n int) {
 		for range runs {
 			for _, d := range DriftsOf(b.run(r), None()) {

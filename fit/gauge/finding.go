@@ -18,7 +18,7 @@ func FindingOf(ms []Measuring, known Repeatability, tempco float64) Finding {
 	if f.Study.Repeatability.Enough() {
 		known = f.Study.Repeatability
 	}
-	f.Drifts = DriftsOf(ms, known)
+	f.Drifts = DriftsOf(f.Study.kept, known)
 	f.Charts = ChartsOf(ms, tempco)
 	for _, h := range HistoryOf(ms, HistoryOptions{Tempco: tempco, Known: known}) {
 		if slices.ContainsFunc(h.Changes, func(c Change) bool { return !c.Control }) { // the chart tells of others

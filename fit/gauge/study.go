@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/stats"
@@ -18,7 +19,8 @@ const level = 0.95
 //
 // Repeatability: within devices and sittings, sigma² = Σ(y - mean of device and
 // sitting)² / Σ(n - 1), interval by chi-square. Operators, fixtures, sittings:
-// see [factors]. The lot: s² of the means of the devices less sigma²/n, n the
+// see [factors]. Devices that scatter far beyond the others (see [uneven]) are left out
+// of all but the order, and named. The lot: s² of the means of the devices less sigma²/n, n the
 // harmonic mean of their numbers of measurings. Share: sigma over the whole
 // spread of single readings, √(lot² + sigma²), its interval from that of the ratio
 // of the two variances (F). Categories: the whole number below √2 × lot over the
@@ -34,9 +36,18 @@ const level = 0.95
 // TestStudyByHand, TestStudyIntervals, TestStudyShift.
 func StudyOf(ms []Measuring, tempco float64) Study {
 	ms = withValue(ms)
+	all := ms
 	s := Study{Categories: -1, SharedBy: math.NaN(), Lot: noEstimate(), Share: noEstimate()}
 	cells := cellsOf(ms)
-	s.Repeatability = repeatability(cells)
+	s.Whole = repeatability(cells)
+	s.Repeatability = s.Whole
+	odd, rest := uneven(cells)
+	if without := repeatability(rest); len(odd) > 0 && without.DF > 0 {
+		s.Repeatability, s.Odd = without, odd
+		s.Repeatability.Basis = fmt.Sprintf("%s, %d times in all, less the worst of %s", count(without.Devices, "device"), without.Measurings, oddWords(odd))
+		ms = among(ms, rest)
+		cells = rest
+	}
 	r := &s.Repeatability
 	if r.DF > 0 {
 		s.MoreDevices = max(0, FewestDevices-r.Devices)
@@ -57,9 +68,10 @@ func StudyOf(ms []Measuring, tempco float64) Study {
 			r.Across = math.Hypot(r.Across, f.SD.Value)
 		}
 	}
+	s.kept = ms
 	s.theLot(ms)
-	s.Order = orderOf(ms)
-	s.warn(ms, cells)
+	s.Order = orderOf(all)
+	s.warn(ms)
 	return s
 }
 
@@ -207,7 +219,7 @@ func (s *Study) theLot(ms []Measuring) {
 }
 
 // warn says what a reader of the study must know.
-func (s *Study) warn(ms []Measuring, cells []cell) {
+func (s *Study) warn(ms []Measuring) {
 	r := s.Repeatability
 	if r.DF > 0 && (r.Devices < FewestDevices || r.DF < FewestDF) {
 		s.add(fit.CodeTooFewRepeats, "too few to tell: %s put in again %s beyond the first, %d and %d are needed; %s",
@@ -216,9 +228,9 @@ func (s *Study) warn(ms []Measuring, cells []cell) {
 	if s.Order.Known && !s.Order.Random {
 		s.add(fit.CodeOrderNotRandom, "%s", s.Order.Text)
 	}
-	if c, share, ok := uneven(cells); ok {
-		s.add(fit.CodeUnevenRepeats, "%s makes %.0f %% of the scatter by itself, far more than chance lets one device: a bad contact, or another device at one of its turns; without it the repeatability is %s",
-			c.device, 100*share, volts(repeatability(slices.DeleteFunc(slices.Clone(cells), func(o cell) bool { return o.device == c.device && o.sitting == c.sitting })).Value))
+	if len(s.Odd) > 0 {
+		s.add(fit.CodeUnevenRepeats, "%s: more scatter than chance lets one device of these have: a bad contact, or another device at one of its turns; left out, the repeatability is %s instead of %s",
+			oddWords(s.Odd), volts(r.Value), volts(s.Whole.Value))
 	}
 	if own := medianU(ms); r.DF > 0 && own > 0 && r.Value < own {
 		s.add(fit.CodeBenchLimited, "the readings repeat to %s, less than their own uncertainty of %s: the step of the display hides the repeatability", volts(r.Value), volts(own))
@@ -252,32 +264,74 @@ func (s *Study) add(code, format string, args ...any) {
 	s.Warnings = append(s.Warnings, fit.Warning{Code: code, Text: fmt.Sprintf(format, args...)})
 }
 
-// uneven looks for one device in one sitting whose scatter is more than chance
-// allows beside that of the others: its mean square over the rest's as F, at 1 %
-// over all of them.
+// uneven parts devices in a sitting whose scatter is more than chance allows beside
+// that of the others from the rest. The one with the greatest mean square is taken
+// out, then the next, up to a fifth of them and two at least; each is tested against
+// those then left, as F at 1 % over their number, and all up to the last that exceeds
+// it are odd: two exchanged devices would hide each other otherwise.
 //
-// Source: the idea of Cochran's test of the largest variance, here with unequal
-// numbers (Cochran, Annals of Eugenics 11 (1941) 47-52, from memory). Checked:
-// TestUneven.
-func uneven(cells []cell) (worst cell, share float64, ok bool) {
-	total, df, groups := 0.0, 0, 0
-	for i := range cells {
-		if n := len(cells[i].values); n > 1 {
-			total, df, groups = total+cells[i].squares(), df+n-1, groups+1
+// Source: the idea of Cochran's test of the largest variance (Annals of Eugenics 11
+// (1941) 47-52), with Rosner's order of steps (both from memory). Checked: TestUneven,
+// TestExchanged.
+func uneven(cells []cell) (odd []string, rest []cell) {
+	rest = cells
+	left, peeled := slices.Clone(cells), []string(nil)
+	for range max(2, len(cells)/5) {
+		at, p := worst(left)
+		if at < 0 {
+			break
+		}
+		if !slices.Contains(peeled, left[at].device) {
+			peeled = append(peeled, left[at].device)
+		}
+		left = slices.Delete(left, at, at+1)
+		if p < 0.01 {
+			odd, rest = slices.Clone(peeled), slices.Clone(left)
 		}
 	}
-	least := 0.01
+	return odd, rest
+}
+
+// worst is the index of the cell with the greatest mean square, and the probability
+// of one so great among as many; -1 where there is none to compare it with.
+func worst(cells []cell) (at int, p float64) {
+	total, df, groups, most := 0.0, 0, 0, 0.0
+	at = -1
 	for i := range cells {
-		own, d := cells[i].squares(), len(cells[i].values)-1
-		if d < 1 || df <= d {
+		d := len(cells[i].values) - 1
+		if d < 1 {
 			continue
 		}
-		rest := (total - own) / float64(df-d)
-		if p := stats.FUpper(own/float64(d)/rest, float64(d), float64(df-d)) * float64(groups); rest > 0 && p < least {
-			worst, share, ok, least = cells[i], own/total, true, p
+		own := cells[i].squares()
+		total, df, groups = total+own, df+d, groups+1
+		if ms := own / float64(d); ms > most {
+			at, most = i, ms
 		}
 	}
-	return worst, share, ok
+	if at < 0 {
+		return -1, 1
+	}
+	d := len(cells[at].values) - 1
+	rest := (total - cells[at].squares()) / float64(df-d)
+	if df <= d || !(rest > 0) {
+		return -1, 1
+	}
+	return at, stats.FUpper(most/rest, float64(d), float64(df-d)) * float64(groups)
+}
+
+// among keeps the measurings of some cells.
+func among(ms []Measuring, cells []cell) []Measuring {
+	return slices.DeleteFunc(slices.Clone(ms), func(m Measuring) bool {
+		return !slices.ContainsFunc(cells, func(c cell) bool { return c.device == m.Device && c.sitting == m.Sitting })
+	})
+}
+
+// oddWords names devices, the first few of them.
+func oddWords(names []string) string {
+	if n := len(names); n > 4 {
+		return fmt.Sprintf("%s and %d more", strings.Join(names[:3], ", "), n-3)
+	}
+	return strings.Join(names, ", ")
 }
 
 func medianU(ms []Measuring) float64 {

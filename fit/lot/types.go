@@ -22,6 +22,10 @@
 // told by a test of its own, which fewer than 1 % of lots of one population pass,
 // also where they are spread evenly over a range (sorted by their seller) or have
 // such tails; lots of fewer than 8 are never parted.
+//
+// [SpecOf] holds a lot against the limits of its data sheet by the rule that is stored
+// with it. It gives verdicts on devices and what follows for the parts that were not
+// measured; what is to be done is the reader's to decide.
 package lot
 
 import (
@@ -125,7 +129,7 @@ type Split struct {
 }
 
 // SplitBasis says what the bar of a [Split] rests on.
-const SplitBasis = "fewer than 1 % of lots of one population pass the bar, all quantities looked at together: by simulation 0.4 % of normal lots, 0.8 % of lots spread evenly over a range or with the tails of Student's t with 5 degrees of freedom"
+const SplitBasis = "fewer than 1 % of lots of one population have as much, all quantities looked at together: by simulation 0.4 % of normal lots, 0.8 % of lots spread evenly over a range or with the tails of Student's t with 5 degrees of freedom"
 
 // Spread is the whole answer for one lot.
 type Spread struct {

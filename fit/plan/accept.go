@@ -23,7 +23,7 @@ type AcceptRequest struct {
 // Decision is what a plan says about the sample at hand.
 type Decision string
 
-// Decisions. Undecided: there are too few values, or no limit.
+// Decisions. Undecided: too few values, no limit, or not normal.
 const (
 	Undecided   Decision = ""
 	Accepted    Decision = "accept"
@@ -36,29 +36,30 @@ type OCPoint struct{ Bad, Accepts float64 }
 // Accept is the answer to an [AcceptRequest].
 type Accept struct {
 	AcceptRequest
-	Needed     int                 // parts that the two points ask for, or N
-	Plan       stats.VariablesPlan // for the sample at hand where that is larger than Needed
-	AtGood     float64             // chance of accepting at Good; NaN
-	AtBad      float64             // chance of accepting at Bad; NaN
-	Often      float64             // share of bad parts with which 95 of 100 lots are accepted
-	Seldom     float64             // share of bad parts with which 10 of 100 lots are
-	Curve      []OCPoint           // operating characteristic, by rising share from 0
-	CountN     int                 // parts of a plan that counts bad ones instead, with the same two points; 0: none, or not asked
-	CountMost  int                 // and how many may be bad
-	Decision   Decision
-	Judgement  stats.Judgement
-	Undecided  string // why there is no decision, ""
-	Normality  Normality
-	SigmaDoubt bool // the sample spreads more than the sigma that is known lets expect (chance below 1 %)
+	Needed       int                 // parts that the two points ask for; without them N
+	Plan         stats.VariablesPlan // for the sample at hand where that is larger than Needed
+	AtGood       float64             // chance of accepting at Good; NaN
+	AtBad        float64             // chance of accepting at Bad; NaN
+	Often        float64             // share of bad parts with which 95 of 100 lots are accepted
+	Seldom       float64             // share of bad parts with which 10 of 100 lots are
+	Curve        []OCPoint           // operating characteristic, by rising share from 0
+	CountN       int                 // parts of a plan that counts bad ones instead, with the same two points; 0: none, or not asked
+	CountMost    int                 // and how many may be bad
+	Decision     Decision
+	Judgement    stats.Judgement
+	Undecided    string  // why there is no decision, ""
+	BadWithThose float64 // where the sample is too small: chance of accepting at Bad with a plan of its size; NaN
+	Normality    Normality
+	SigmaDoubt   bool // the sample spreads more than the sigma that is known lets expect (chance below 1 %)
 }
 
 // ToAccept answers an [AcceptRequest]. A sample of fewer parts than the plan wants
 // is not judged, unless N says to plan with so few; one of more is judged with the
-// factor of its own size, which keeps both risks. Errors: [Invalid]. Checked:
-// TestAccept.
+// factor of its own size, which keeps both risks. Values that are not normal are
+// not judged. Errors: [Invalid]. Checked: TestAccept.
 func ToAccept(r AcceptRequest) (*Accept, error) {
 	known := !math.IsNaN(r.KnownSigma)
-	a := &Accept{AcceptRequest: r, AtGood: math.NaN(), AtBad: math.NaN(), Normality: Normality{P: math.NaN()}}
+	a := &Accept{AcceptRequest: r, AtGood: math.NaN(), AtBad: math.NaN(), BadWithThose: math.NaN(), Normality: Normality{P: math.NaN()}}
 	if err := a.check(known); err != nil {
 		return nil, err
 	}
@@ -78,7 +79,15 @@ func ToAccept(r AcceptRequest) (*Accept, error) {
 			a.Plan = stats.VariablesPlanWith(3, r.Good, r.GoodRisk, known)
 		}
 	}
+	// A factor as it is written down, where the risks leave room for that.
+	if k := math.Floor(a.Plan.KMost*1000) / 1000; k >= a.Plan.KLeast {
+		a.Plan.K = k
+	}
 	a.Needed = a.Plan.N
+	if points && r.N > 0 {
+		a.Needed = stats.VariablesPlanFor(r.Good, r.GoodRisk, r.Bad, r.Risk, known).N
+		a.Needed = max(a.Needed, 3)
+	}
 	if math.IsNaN(r.K) && r.N == 0 && r.Lot.N > a.Plan.N {
 		a.Plan = stats.VariablesPlanWith(r.Lot.N, r.Good, r.GoodRisk, known)
 	}
@@ -161,12 +170,18 @@ func (a *Accept) judge(known bool) {
 		return
 	case l.N < plan.N:
 		a.Undecided = fmt.Sprintf("the plan wants %d parts, and %d have a value", plan.N, l.N)
+		if l.N >= 3 && math.IsNaN(a.K) && !math.IsNaN(a.Bad) {
+			a.BadWithThose = stats.VariablesPlanWith(l.N, a.Good, a.GoodRisk, known).Accepts(a.Bad)
+		}
 	}
 	if known && l.N > 1 {
 		df := float64(l.N - 1)
 		a.SigmaDoubt = stats.ChiSquareUpper(df*l.SD*l.SD/(sd*sd), df) < 0.01
 	}
 	a.Judgement = plan.Judge(l.Mean, sd, l.N, a.Low, a.High)
+	if why := l.unfit(a.Normality); why != "" && a.Undecided == "" {
+		a.Undecided = why
+	}
 	switch {
 	case a.Undecided != "":
 	case !a.Judgement.Computable:
@@ -189,7 +204,7 @@ func curve(p stats.VariablesPlan, bad float64) []OCPoint {
 	const steps = 200
 	points := make([]OCPoint, steps+1)
 	for i := range points {
-		x := end * float64(i) / steps
+		x := math.Round(end*float64(i)/steps*1e12) / 1e12
 		points[i] = OCPoint{x, p.Accepts(x)}
 	}
 	return points

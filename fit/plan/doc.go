@@ -15,6 +15,7 @@ package plan
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"gatesill/fit/stats"
 )
@@ -57,10 +58,24 @@ func (e *Invalid) Error() string { return e.Input + ": " + e.Why }
 // Lot is a sample that is at hand already; the zero Lot is none.
 type Lot struct {
 	Name   string
+	Of     string  // what was measured: "V_GS(th)"
 	N      int     // devices with a value
 	Mean   float64 // V
 	SD     float64 // V, between devices
 	Values []float64
+	Mixed  bool // it looks like two populations
+}
+
+// unfit says why nothing that rests on one normal distribution holds for the lot;
+// "" where it may.
+func (l *Lot) unfit(n Normality) string {
+	switch {
+	case l.Mixed:
+		return "the lot is two populations"
+	case n.Doubts:
+		return fmt.Sprintf("the lot is far from normal (Anderson-Darling p = %.2g)", n.P)
+	}
+	return ""
 }
 
 // LotOf is a sample of values, V, with their mean and standard deviation.
@@ -74,7 +89,7 @@ func (l *Lot) given() bool { return l.N > 0 || l.Name != "" }
 // fraction checks a share, risk or confidence.
 func fraction(input string, x float64, hint string) error {
 	if !(x > 0 && x < 1) {
-		return &Invalid{input, fmt.Sprintf("%v must lie between 0 and 100 %%, both left out", percent(x)), hint}
+		return &Invalid{input, percent(x) + ", must lie above 0 and below 100 %", hint}
 	}
 	return nil
 }
@@ -92,7 +107,7 @@ func above(input string, x float64, unit, hint string) error {
 	case math.IsNaN(x):
 		return &Invalid{input, "needed", hint}
 	case !(x > 0) || math.IsInf(x, 0):
-		return &Invalid{input, fmt.Sprintf("%.6g %s must be above 0", x, unit), hint}
+		return &Invalid{input, strings.TrimSpace(fmt.Sprintf("%.6g %s", x, unit)) + ", must be above 0", hint}
 	}
 	return nil
 }

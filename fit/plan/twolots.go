@@ -138,7 +138,7 @@ func ToShowSame(r SameRequest) (*Same, error) {
 		atLeast("n", r.N, fewest, "two lots are not compared with fewer than 3 of either"), atMost("n", r.N),
 	)
 	if err == nil && !(math.Abs(r.Shift) < r.Margin) {
-		err = &Invalid{"shift", fmt.Sprintf("a true shift of %.6g V is not within the margin of %.6g V", r.Shift, r.Margin), "a smaller one, or none"}
+		err = &Invalid{"shift", fmt.Sprintf("a true shift of %s is not within the margin of %s", volts(r.Shift), volts(r.Margin)), "a smaller --shift, a larger --margin, or no --shift"}
 	}
 	if err != nil {
 		return nil, err
@@ -167,6 +167,14 @@ func ToShowSame(r SameRequest) (*Same, error) {
 	s.ChanceT = stats.WelchEquivalencePower(s.Few, s.Few, r.Shift, -r.Margin, r.Margin, r.SD, r.SD, sameAlpha)
 	s.Hopeless = s.Chance < hopeless
 	return s, nil
+}
+
+// volts writes a voltage as it would be given.
+func volts(x float64) string {
+	if math.Abs(x) < 1 {
+		return fmt.Sprintf("%.6g mV", 1e3*x)
+	}
+	return fmt.Sprintf("%.6g V", x)
 }
 
 // atFewest is a size that is also enough to be compared at all; 0: too large.
@@ -200,7 +208,7 @@ func sdHigh(l Lot) float64 {
 }
 
 // reach is the least x at which chance, which rises with it, is reached, to a part
-// in 10 000.
+// in 1000.
 func reach(chance float64, of func(x float64) float64) float64 {
 	lo, hi := 0.0, 1.0
 	for !(of(hi) >= chance) {
@@ -209,7 +217,7 @@ func reach(chance float64, of func(x float64) float64) float64 {
 			return math.NaN()
 		}
 	}
-	for hi-lo > 1e-4*hi {
+	for hi-lo > 1e-3*hi {
 		if mid := (lo + hi) / 2; of(mid) >= chance {
 			hi = mid
 		} else {

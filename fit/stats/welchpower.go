@@ -61,17 +61,24 @@ func overWelch(n, m int, sdX, sdY, tail float64, f func(se, reach float64) float
 	critical := criticalBetween(tail, math.Min(dx, dy), dx+dy)
 	nx, wx := chiRule(dx, math.Inf(1))
 	ny, wy := chiRule(dy, math.Inf(1))
+	alike := n == m && v == w // then what the samples find may be exchanged
 	sum := 0.0
 	for i, s := range nx {
 		if wx[i] < 1e-16 {
 			continue
 		}
 		for k, r := range ny {
-			if wy[k] < 1e-16 {
+			weight := wx[i] * wy[k]
+			if alike && k > i {
+				break
+			} else if alike && k < i {
+				weight *= 2
+			}
+			if weight < 1e-18 {
 				continue
 			}
 			found, df := satterthwaite(v*s*s, dx, w*r*r, dy)
-			sum += wx[i] * wy[k] * f(se, critical(df)*found/se)
+			sum += weight * f(se, critical(df)*found/se)
 		}
 	}
 	return math.Min(1, sum)

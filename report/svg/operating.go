@@ -30,7 +30,7 @@ func appendOperating(dst []byte, a *plan.Accept, f Frame) []byte {
 	if f.Desc == "" {
 		f.Desc = fmt.Sprintf("How often a lot is accepted, by the share of bad parts in it: %s of lots with %s bad, %s of lots with %s bad.", "95 %", report.Chance(a.Often), "10 %", report.Chance(a.Seldom))
 	}
-	c := &canvas{b: dst, f: f, l: 62, t: 42, r: f.Width - 22, d: f.Height - 52}
+	c := &canvas{b: dst, f: f, l: 62, t: 54, r: f.Width - 22, d: f.Height - 52}
 	end := 1.0
 	if n := len(a.Curve); n > 0 && drawable(a.Curve[n-1].Bad) && a.Curve[n-1].Bad > 0 {
 		end = a.Curve[n-1].Bad
@@ -54,7 +54,7 @@ func appendOperating(dst []byte, a *plan.Accept, f Frame) []byte {
 		c.text("tick", c.l-8, y.at(t.value)+4, "end", t.label)
 	}
 	c.text("", (c.l+c.r)/2, f.Height-12, "middle", "bad in the lot, %")
-	c.text("", c.l-50, c.t-8, "", "accepted, %")
+	c.text("", c.l-50, c.t-12, "", "accepted, %")
 	c.raw(`<g class="lines"><path stroke-width="2" d="`)
 	pen := "M"
 	for _, q := range a.Curve {
@@ -72,8 +72,7 @@ func appendOperating(dst []byte, a *plan.Accept, f Frame) []byte {
 	c.raw(`"/></g>`)
 	for _, q := range []struct {
 		bad, accepts float64
-		what         string
-	}{{a.Good, a.AtGood, "good lot"}, {a.Bad, a.AtBad, "bad lot"}} {
+	}{{a.Good, a.AtGood}, {a.Bad, a.AtBad}} {
 		if math.IsNaN(q.bad) || math.IsNaN(q.accepts) || q.bad > end {
 			continue
 		}
@@ -82,16 +81,13 @@ func appendOperating(dst []byte, a *plan.Accept, f Frame) []byte {
 		c.attr("cx", px)
 		c.attr("cy", py)
 		c.raw(` r="5"/>`)
-		words := fmt.Sprintf("%s: %s bad, accepted %s", q.what, report.Chance(q.bad), report.Chance(q.accepts))
-		place := label{px + 10, py - 8, false}
-		if px+10+textWidth(words, 12) > c.r {
-			place = label{px - 10, py - 8, true}
+		// Above and to the right of a curve that falls nothing is in the way.
+		words := fmt.Sprintf("%s bad: accepted %s", report.Chance(q.bad), report.Chance(q.accepts))
+		if px+10+textWidth(words, 12) <= c.r {
+			c.text("reft", px+10, py-6, "", words)
+		} else {
+			c.text("reft", c.r, py-14, "end", words)
 		}
-		anchor := ""
-		if place.right {
-			anchor = "end"
-		}
-		c.text("reft", place.x, place.y, anchor, words)
 	}
 	c.close()
 	return c.b

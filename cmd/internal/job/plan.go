@@ -26,6 +26,7 @@ type PlanRequest struct {
 	Margin                                     record.Amount // V, or % or A of the idle current
 	From                                       string        // lot of the store; "": none
 	Output                                     string        // file to draw in; "": none
+	Fail                                       bool          // accept: [ExitNo] when the lot is not accepted; undecided is no such answer
 }
 
 // Plan answers how many parts to measure for a purpose: find, shift, same, cover,
@@ -34,8 +35,22 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 	if rq.Output != "" && rq.Output != "-" && strings.ToLower(filepath.Ext(rq.Output)) != ".svg" {
 		return Usage("-o plan.svg", "-o %s: the operating characteristic is drawn as .svg", rq.Output)
 	}
+	if rq.Fail && rq.From == "" {
+		return Usage("--from LOT", "--fail: no lot to decide on")
+	}
+	if rq.From == "" && (rq.LimitLow.IsKnown() || rq.LimitHigh.IsKnown()) {
+		return Usage("--from LOT", "--limit-low, --limit-high: no lot to hold against them")
+	}
 	if rq.N.IsKnown() && rq.N.Float() == 0 {
 		return Usage("--n 20", "--n: 0 parts show nothing")
+	}
+	for _, v := range []float64{rq.Shift.Float(), rq.SD.Float(), rq.SigmaKnown.Float(), voltsOf(rq.Margin)} {
+		if v > record.GreatestShift {
+			return Usage("50 mV is written 50mV: M is mega, m is milli", "%s of gate voltage is more than any", report.FormatGiven(v, "V"))
+		}
+		if v >= bareVolts {
+			env.warn("%s of gate voltage: a bare number is in volts, 50 mV is written 50mV", report.FormatGiven(v, "V"))
+		}
 	}
 	var from *report.Sheet
 	if rq.From != "" {
@@ -64,9 +79,26 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 		}
 	}
 	if env.JSON {
-		return report.PlanJSON(env.Out, a)
+		err = report.PlanJSON(env.Out, a)
+	} else {
+		err = report.PlanTable(env.Out, a, env.style())
 	}
-	return report.PlanTable(env.Out, a, env.style())
+	if acc, ok := a.(*plan.Accept); ok && err == nil && rq.Fail {
+		switch acc.Decision {
+		case plan.NotAccepted:
+			return &Failure{Code: ExitNo}
+		case plan.Undecided:
+			env.warn("--fail: nothing was decided about lot %s, and that is no refusal: exit code 0", report.Clean(rq.From))
+		}
+	}
+	return err
+}
+
+func voltsOf(a record.Amount) float64 {
+	if a.Unit != "V" {
+		return math.NaN()
+	}
+	return a.Value
 }
 
 // planFailure tells an input that nothing can be planned with by its flag.
@@ -118,7 +150,7 @@ func (e *Env) answer(kind string, rq PlanRequest, from *report.Sheet) (plan.Answ
 	case "same":
 		r := plan.SameRequest{Shift: rq.Shift.Float(), SD: rq.SD.Float(), Risk: or(rq.Risk, 0.2), N: n}
 		var err error
-		if r.Margin, err = marginVolts(rq.Margin, from); err != nil {
+		if r.Margin, err = e.marginVolts(rq.Margin, from); err != nil {
 			return nil, err
 		}
 		if from != nil && !rq.SD.IsKnown() {
@@ -148,7 +180,7 @@ func (e *Env) answer(kind string, rq PlanRequest, from *report.Sheet) (plan.Answ
 			}
 			r.N = r.Lot.N
 			if r.Low, r.High = planLimits(from, rq, r.Lot.Mean); math.IsNaN(r.Low) && math.IsNaN(r.High) {
-				return nil, Usage("gatesill lot edit "+Quote(from.Lot.Name)+" --vgsth-min 2 --vgsth-max 4, or --limit-low and --limit-high", "lot %q: no limit of V_GS(th) is known for its part", from.Lot.Name)
+				return nil, Usage("gatesill lot edit "+Quote(from.Lot.Name)+" --vgsth-min 2 --vgsth-max 4, or --limit-low and --limit-high", "lot %q: no limit of its part is known for V_GS(th) at %s", from.Lot.Name, report.FormatGiven(from.TestCurrent, "A"))
 			}
 		}
 		return answered(plan.ToBeCapable(r))
@@ -216,7 +248,9 @@ func sampleOf(s *report.Sheet, key fit.Key) plan.Lot {
 			values = append(values, q.Value)
 		}
 	}
-	return plan.LotOf(s.Lot.Name, values)
+	l := plan.LotOf(s.Lot.Name, values)
+	l.Of, l.Mixed = report.KeyOf(key).Symbol, s.Spread.Populations > 1
+	return l
 }
 
 func hasSpread(l plan.Lot) error {
@@ -240,7 +274,7 @@ func ownNumber(n int, l plan.Lot) error {
 // planLimits are the limits given, else those of the part, with the sign of the
 // values they are for.
 func planLimits(s *report.Sheet, rq PlanRequest, mean float64) (low, high float64) {
-	low, high = s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
+	low, high = limitsOf(s, fit.KeyVgsth)
 	if rq.LimitLow.IsKnown() || rq.LimitHigh.IsKnown() {
 		low, high = rq.LimitLow.Float(), rq.LimitHigh.Float()
 	}
@@ -257,39 +291,38 @@ func planLimits(s *report.Sheet, rq PlanRequest, mean float64) (low, high float6
 	return low, high
 }
 
-// marginVolts is a margin in volts of gate bias; one in amperes or in percent of
-// the idle current needs the transconductance of a lot.
-func marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
-	if m.IsZero() && s != nil {
+// marginVolts is a margin in volts of gate bias, NaN for none; one of the idle
+// current is turned by the transconductance of a lot, which also may have a margin
+// stored.
+func (e *Env) marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
+	stored := m.Unit == "" && s != nil
+	if stored {
 		m = s.Lot.Margin
 	}
 	switch {
-	case m == record.Amount{}:
+	case m.Unit == "":
 		return math.NaN(), nil
-	case m.Unit == "V":
-		return m.Value, nil
+	case s == nil && m.Unit != "V":
+		return 0, Usage("--margin 50mV, or --from LOT whose transconductance tells the volts", "--margin %s: of the idle current of which lot?", report.AmountWords(m))
 	case s == nil:
-		return 0, Usage("--margin 50mV, or --from LOT whose transconductance tells the volts", "--margin %s: of the idle current of which lot?", m)
+		return m.Value, nil
 	}
-	gm := s.Spread.Summary[fit.KeyGmIdle].Median
-	if !(gm > 0) || m.Unit == "%" && math.IsNaN(s.IdleCurrent) {
-		return 0, Usage("--margin 50mV", "--margin %s: lot %q has no transconductance at an idle current to turn it into volts", m, s.Lot.Name)
+	volts, how, err := inVolts(s, m, record.Num{}, stored)
+	if err == nil && how != "" {
+		e.talk("margin: %s", report.Clean(how))
 	}
-	if m.Unit == "%" {
-		return m.Value / 100 * math.Abs(s.IdleCurrent) / gm, nil
-	}
-	return m.Value / gm, nil
+	return volts, err
 }
 
 // tellPlanning warns of what in a lot does not fit what is planned with.
 func (e *Env) tellPlanning(kind string, s *report.Sheet) {
-	if kind == "find" {
+	switch kind {
+	case "find":
 		return
-	}
-	if s.Spread.Populations > 1 {
-		e.warn("lot %s looks like two populations: what rests on one normal distribution does not hold for it [%s]", report.Clean(s.Lot.Name), fit.CodeTwoPopulations)
-	}
-	if kind != "accept" && kind != "capability" && kind != "cover" {
+	case "shift", "same":
+		if s.Spread.Populations > 1 {
+			e.warn("lot %s looks like two populations: its standard deviation is not that of one [%s]", report.Clean(s.Lot.Name), fit.CodeTwoPopulations)
+		}
 		return
 	}
 	dead := 0
