@@ -20,7 +20,7 @@ var mayImport = map[string][]string{
 	"fit/lsq":           {},
 	"fit/stats":         {},
 	"fit/lot":           {"fit", "fit/stats"},
-	"fit/match":         {"fit", "fit/stats", "fit/match/blossom"},
+	"fit/match":         {"fit", "fit/stats", "fit/lot", "fit/match/blossom"},
 	"fit/match/blossom": {},
 	"fit/compare":       {"fit", "fit/stats", "fit/lot"},
 	"fit/gauge":         {"fit", "fit/stats"},
