@@ -34,6 +34,9 @@ func MatchTable(w io.Writer, m Matched, style Style) error {
 		}
 		p.line("")
 		wrapped(p, "", "  ", m.boundWords(), style.Width)
+		if m.TimeEnded {
+			wrapped(p, "", "  ", "The search was ended by its time limit: another run may find and number other sets. --lock takes those of its own run, and shows them.", style.Width)
+		}
 		inPackages(p, &m, style)
 	}
 	repairs(p, &m, style)

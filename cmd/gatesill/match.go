@@ -126,7 +126,9 @@ beginning of an id.`,
 	show.Flags().StringVar(&labels, "labels", "", "write lines for labels (serial, gate voltage, set) to `FILE` instead, - for stdout")
 	use := &cobra.Command{
 		Use: "lock SET", Short: "Say in which unit a reserved set was built in", Args: exactly(1), Example: "  gatesill set lock S3 --unit 'amplifier 7'",
-		RunE:              func(cmd *cobra.Command, a []string) error { return job.SetUse(cmd.Context(), env, a[0], unit, useReason) },
+		RunE: func(cmd *cobra.Command, a []string) error {
+			return job.SetUse(cmd.Context(), env, a[0], unit, useReason)
+		},
 		ValidArgsFunction: sets,
 	}
 	use.Flags().StringVar(&unit, "unit", "", "the unit, in `WORDS` (default: what it was reserved for)")

@@ -208,11 +208,11 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 	if err := st.enough(); err != nil {
 		return err
 	}
-	found, err := env.search(ctx, st, rq)
+	found, ended, err := env.search(ctx, st)
 	if found == nil || err != nil && ctx.Err() == nil {
 		return matchFailure(st, err)
 	}
-	m.Matching, m.Cut = *found, ctx.Err() != nil
+	m.Matching, m.Cut, m.TimeEnded = *found, ctx.Err() != nil, ended
 	// What there is to say of several sessions stands in the notes, with its size.
 	m.Warnings = slices.DeleteFunc(m.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown })
 	if !m.Cut {
@@ -236,8 +236,9 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 	return errors.Join(err, ctx.Err())
 }
 
-// search runs the matching, with a word on stderr while it takes long.
-func (e *Env) search(ctx context.Context, st *stock, rq MatchRequest) (*match.Matching, error) {
+// search runs the matching, with a word on stderr while it takes long; ended: by its
+// time limit, so that another run may find other sets.
+func (e *Env) search(ctx context.Context, st *stock) (found *match.Matching, ended bool, err error) {
 	limit := st.opt.TimeLimit
 	p := newProgress(e, "searching for better sets, at most "+limit.String())
 	done := make(chan struct{})
@@ -256,12 +257,13 @@ func (e *Env) search(ctx context.Context, st *stock, rq MatchRequest) (*match.Ma
 		}
 	}()
 	start := time.Now()
-	found, err := match.Match(ctx, st.members, st.opt)
+	found, err = match.Match(ctx, st.members, st.opt)
+	ended = found != nil && found.Bound.Kind == match.LowerBound && time.Since(start) >= limit
 	close(done)
 	<-ended
 	p.Done()
 	e.detail("%s matched in %v", count(len(st.members), "device"), time.Since(start).Round(time.Millisecond))
-	return found, err
+	return found, ended, err
 }
 
 // matchFailure gives an error of the matching its exit code and a hint.
