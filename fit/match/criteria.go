@@ -463,6 +463,29 @@ func (p *problem) together(i, j int) int64 {
 	return p.distance(i, j)
 }
 
+// metric is together in the form in which it is quick for two single numbers, the
+// commonest case where there are many devices.
+func (p *problem) metric() func(i, j int) int64 {
+	if len(p.opt.By) != 2 || p.from[2] != 2 {
+		return p.together
+	}
+	type place struct{ x, y, sx, sy int64 }
+	at := make([]place, len(p.at))
+	for d := range at {
+		at[d] = place{p.at[d][0], p.at[d][1], p.scaled[d][0], p.scaled[d][1]}
+	}
+	limits, limX, limY := p.limits(), p.limit[0], p.limit[1]
+	return func(i, j int) int64 {
+		a, b := &at[i], &at[j]
+		if limits && (absolute(a.x-b.x) > limX || absolute(a.y-b.y) > limY) {
+			return beyond
+		}
+		return absolute(a.sx-b.sx) + absolute(a.sy-b.sy)
+	}
+}
+
+func absolute(x int64) int64 { return max(x, -x) }
+
 // oneQuantity reports whether devices differ by a single number.
 func (p *problem) oneQuantity() bool { return len(p.opt.By) == 1 && p.from[len(p.from)-1] <= 1 }
 

@@ -20,6 +20,7 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 	begin := time.Now()
 	share := func(f float64) time.Time { return begin.Add(time.Duration(f * float64(limit))) }
 	g := p.newGroups(ctx, share(1))
+	brief := func() func() bool { return g.by(time.Now().Add(limit / 10)) }
 	g.begin(p)
 	g.improve(20, g.by(share(0.25)))
 	a := &answer{kind: LowerBound}
@@ -27,13 +28,22 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 		g.tighten(share(0.35))
 	}
 	var numbered string
-	a.most, numbered = g.number(p.mostGroups(g), g.by(share(0.4)))
+	var all []column
+	if g.ban && len(g.sets) > 0 {
+		all = g.all(mostColumns, g.by(share(0.3)))
+	}
+	a.most, numbered = g.number(all, p.mostGroups(g), brief())
 	low := p.simpleBound(g)
 	if g.total > low.total && len(g.sets) > 0 {
-		g.priced(a, &low, len(g.sets), share(0.7), share(0.97))
+		g.priced(a, &low, len(g.sets), share(0.7), share(0.85))
+	}
+	if all != nil && g.total > low.total {
+		if text, ok := g.settle(all, brief()); ok {
+			low = simple{g.total, text}
+		}
 	}
 	a.sets, _ = g.keep()
-	a.total = min(low.total, g.total)
+	a.total = low.total
 	a.proof = low.proof
 	if numbered != "" {
 		a.proof = numbered + "; " + a.proof
@@ -256,28 +266,41 @@ func (p *problem) mostGroups(g *groups) int {
 // the shares in which sets are then used, whole sets are made.
 func (g *groups) priced(a *answer, low *simple, z int, pricesEnd, end time.Time) {
 	m := newMaster(g, z, 4*float64(g.total+g.worst()+nano/1000))
-	seen := map[string]bool{}
-	add := func(c column) {
-		c.items = slices.Clone(c.items)
-		slices.Sort(c.items)
-		if key := string(bytesOf(c.items)); !seen[key] {
-			seen[key] = true
-			m.add(c)
-		}
-	}
+	add := m.adder()
 	for _, s := range g.sets {
 		add(column{toInt32(s), g.cost(s)})
 	}
 	g.nearColumns(add, 60)
 	over := g.by(pricesEnd)
 	best := low.total
+	m.generate(add, over, 0, func(t int64, prices []float64) bool {
+		if t > best {
+			best = t
+			*low = simple{t, fmt.Sprintf("prices of the %d items were held against every possible set by an exact search; what they leave unpaid is taken off", g.n)}
+			a.prices = prices
+		}
+		return best >= g.total
+	})
+	if best < g.total {
+		g.round(m, best, z, g.by(end))
+	}
+}
+
+// generate adds columns that the prices overlook until there are none, or rounds
+// have been made where that is not 0, or a bound that they prove is enough. The
+// prices tried lie halfway to the best so far, which keeps them from swinging
+// (Wentges, Weighted Dantzig-Wolfe decomposition for linear mixed-integer
+// programming, International Transactions in Operational Research 4, 1997; from
+// memory).
+func (m *master) generate(add func(column), over func() bool, rounds int, enough func(bound int64, prices []float64) bool) {
 	var center []float64
-	rounds := 0
-	for !over() {
+	best := int64(math.MinInt64)
+	for round := 1; !over(); round++ {
 		m.solve(over)
 		v := m.prices()
-		trial := v
-		if center != nil && rounds%4 != 3 {
+		trial, own := v, true
+		if center != nil && round%4 != 0 {
+			own = false
 			trial = make([]float64, len(v))
 			for i := range v {
 				trial[i] = 0.5*v[i] + 0.5*center[i]
@@ -287,27 +310,34 @@ func (g *groups) priced(a *answer, low *simple, z int, pricesEnd, end time.Time)
 		for i := range v {
 			whole[i] = int64(math.Floor(trial[i]))
 		}
-		t, found, ok := g.bound(whole, z, over)
-		rounds++
+		t, found, ok := m.g.bound(whole, m.z, over)
 		if ok && t > best {
 			best, center = t, trial
-			*low = simple{t, fmt.Sprintf("prices of the %d items were held against every possible set by an exact search; what they leave unpaid is taken off", g.n)}
-			a.prices = trial
-		} else if ok && center == nil {
-			center = trial
 		}
-		if best >= g.total {
+		if ok && enough(t, trial) || rounds > 0 && round >= rounds {
 			return
 		}
 		before := len(m.cols)
 		for _, c := range found {
 			add(c)
 		}
-		if ok && (float64(best) >= m.value()*(1-1e-5) || len(m.cols) == before && &trial[0] == &v[0]) {
-			break
+		if ok && (float64(best) >= m.value()*(1-1e-5) || len(m.cols) == before && own) {
+			return
 		}
 	}
-	g.round(m, low.total, z, g.by(end))
+}
+
+// adder gives a function that adds columns which are not there yet.
+func (m *master) adder() func(column) {
+	seen := map[string]bool{}
+	return func(c column) {
+		c.items = slices.Clone(c.items)
+		slices.Sort(c.items)
+		if key := string(bytesOf(c.items)); !seen[key] {
+			seen[key] = true
+			m.add(c)
+		}
+	}
 }
 
 func bytesOf(items []int32) []byte {
@@ -358,10 +388,16 @@ func (g *groups) round(m *master, low int64, most int, over func() bool) {
 	bestSets, bestTotal := g.keep()
 	start := slices.Clone(bestSets)
 	for try := 0; try < 24 && !over() && (len(bestSets) < most || bestTotal > low && low > math.MinInt64); try++ {
-		if try%4 == 3 { // from the best so far, patiently
+		switch {
+		case try%4 == 3: // from the best so far, patiently
 			g.take(bestSets)
 			g.improve(60, over)
-		} else {
+		case try%4 == 2 || m.upTo && try%2 == 0:
+			g.clear()
+			g.dive(m, over)
+			g.greedy(false)
+			g.improve(40, over)
+		default:
 			g.clear()
 			order := g.rng.Perm(len(cols))
 			weight := make([]float64, len(cols))

@@ -70,6 +70,7 @@ func (p *problem) couples() *couples {
 			}
 		}
 	}
+	together := p.metric()
 	c.distance = func(i, j int) int64 {
 		a, b := c.things[i], c.things[j]
 		switch {
@@ -78,9 +79,12 @@ func (p *problem) couples() *couples {
 		case half == 1 && of[a[0]] != of[b[0]]:
 			return beyond
 		case half == 1:
-			return p.together(a[0], b[0])
+			return together(a[0], b[0])
 		}
 		return p.mismatch(append(append(make([]int, 0, 2*half), a...), b...))
+	}
+	if half == 1 && p.loose() && !p.complementary {
+		c.distance = together
 	}
 	c.coordinates(p)
 	c.cloud.Distance = c.distance
