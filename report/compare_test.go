@@ -33,7 +33,7 @@ func comparedLots(n int) report.ComparedLots {
 				Shift: 0.1452, Low: 0.1108, High: 0.1797, Level: 0.95, DF: 34.2, P: 1.5e-11, MarginLow: 0.1165, MarginHigh: 0.1740, Margin: 0.05, MarginSet: compare.Before,
 				Verdict: compare.OutsideMargin, Sentence: "the shift of +145 mV lies outside the margin of 50 mV, as does its whole 90 % interval",
 				NotExcluded: 0.1797, Raw: 0.1322, Spread: compare.Interval{Value: 1.146, Low: 0.79, High: 1.66}, SpreadTest: "Bonett's interval",
-				Secondary: []compare.Secondary{{Test: "Welch's t", Statistic: 8.414, P: 1.5e-11, PAdjusted: 6e-11}, {Test: "rank sum", Statistic: 812, P: 3e-10, PAdjusted: 9e-10}, {Test: "spread", Statistic: math.NaN(), P: 0.47, PAdjusted: 0.47}},
+				Secondary: []compare.Secondary{{Test: "Welch's t", Shift: compare.Interval{Value: 0.145, Low: 0.111, High: 0.180}, Statistic: 8.414, P: 1.5e-11, PAdjusted: 6e-11}, {Test: "rank sum", Shift: compare.Interval{Value: 0.141, Low: math.NaN(), High: math.NaN()}, Statistic: 812, P: 3e-10, PAdjusted: 9e-10}, {Test: "spread", Shift: compare.Interval{Value: math.NaN(), Low: math.NaN(), High: math.NaN()}, Statistic: math.NaN(), P: 0.47, PAdjusted: 0.47}},
 				Counts:    [2]compare.Counts{{N: 30, WithValue: 30}, {N: 31, WithValue: 29, Above: 1, Flagged: 2, Aside: 1, Without: 1, Control: 2}},
 				Centre:    [2]float64{3.0427, 3.1879}, SD: [2]float64{0.0620, 0.0710},
 				Common: compare.Common{U: 0.0042, Basis: "sessions of one bench", Controls: 2, Offset: 0.013, OffsetU: 0.002},

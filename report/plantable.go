@@ -97,10 +97,8 @@ func about(x float64) string {
 }
 
 func (p *planPrinter) find(f *plan.Find) {
-	bad := share(f.Bad) + " are bad"
-	where := "Where " + bad
+	where := "Where " + share(f.Bad) + " are bad"
 	if f.BadCount > 0 {
-		bad = fmt.Sprintf("%d of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 		where = fmt.Sprintf("With %d bad of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 	}
 	risk := 1 - f.Confidence
@@ -180,10 +178,10 @@ func (p *planPrinter) zeroTable(f *plan.Find) {
 	}
 }
 
-// spread says which standard deviation was planned with.
+// spreadWords says which standard deviation was planned with.
 func spreadWords(sd float64, l plan.Lot) string {
 	if l.Name != "" {
-		return fmt.Sprintf("sd %s from %s of %s", about(sd), count(l.N, "device"), l.Name)
+		return fmt.Sprintf("sd %s of %s from %s of %s", about(sd), l.Of, count(l.N, "device"), l.Name)
 	}
 	return "sd " + given(sd)
 }
@@ -269,7 +267,7 @@ func (p *planPrinter) same(s *plan.Same) {
 	}
 	switch {
 	case s.Hopeless:
-		p.answer("%d of either lot cannot show it: they would, %s, %s of the time.", s.Few, truth, Chance(s.Chance))
+		p.answer("%d of either lot cannot show that the shift is within ±%s (%s): %s they would %s of the time.", s.Few, margin, sd, truth, Chance(s.Chance))
 	case s.N > 0:
 		p.answer("%d of either lot show that the shift is within ±%s %s of the time, %s (%s).", s.N, margin, Chance(s.Chance), truth, sd)
 	}
@@ -285,19 +283,4 @@ func (p *planPrinter) same(s *plan.Same) {
 	p.reaches("smallest margin shown", s.N, s.Smallest, sd, false)
 	p.trimming(s.NeededT, s.Needed, s.N, s.ChanceT)
 	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
-}
-
-// doubts says where values are not normal.
-func (p *planPrinter) doubts(n plan.Normality, l plan.Lot) {
-	if n.Doubts {
-		p.line("")
-		p.say("Caution: the values of %s are not normal (Anderson-Darling, p %s); what rests on that does not hold for them.", l.Name, pValue(n.P))
-	}
-}
-
-func pValue(x float64) string {
-	if x < 0.0001 {
-		return "below 0.0001"
-	}
-	return fmt.Sprintf("%.2g", x)
 }

@@ -284,3 +284,34 @@ func specBlock(p *printer, s Sheet, style Style) {
 		wrapped(p, "  "+f.Label+": ", "    ", f.Value, style.Width)
 	}
 }
+
+// SendBackJudged says whether the rule to send a lot back for a device outside the
+// limits of the data sheet is broken, as the specification has it: by V_GS(th) and
+// the guard band, whatever else is looked at. "" where the lot has no limits.
+func SendBackJudged(s *Sheet) string {
+	sp := s.Spec
+	if sp == nil {
+		return ""
+	}
+	if sp.Why != "" {
+		return "whether your stored rule is broken cannot be told: " + sp.Why
+	}
+	limits := "the data sheet's limits of V_GS(th)"
+	var failed []string
+	for _, d := range sp.Devices {
+		if d.Decision == lot.Fail {
+			failed = append(failed, d.Name)
+		}
+	}
+	text := "your stored rule is kept: no device is outside " + limits
+	switch n := sp.Count[lot.ConditionalFail]; {
+	case len(failed) > 0:
+		text = fmt.Sprintf("your stored rule is broken: %s outside %s: %s", count(len(failed), "device"), limits, namesWords(failed, 5))
+	case n > 0:
+		text = fmt.Sprintf("your stored rule is kept: %s outside %s by less than the guard band", count(n, "device"), limits)
+	}
+	if sp.Undecided > 0 {
+		text += fmt.Sprintf("; of %s it cannot be told", count(sp.Undecided, "device"))
+	}
+	return text
+}

@@ -56,6 +56,12 @@ func (c *comparing) more() {
 		have = len(c.pairs.d)
 	}
 	switch {
+	case math.Abs(o.Shift) > m:
+		o.MoreText = "the shift seen lies outside the margin: more devices would rather show that"
+		if n > have {
+			o.More = n
+			o.MoreText += fmt.Sprintf("; were the lots truly alike, %d %s would show it with a chance of 80 %%", n, what)
+		}
 	case n == 0:
 		o.MoreText = fmt.Sprintf("more than %d %s would be needed", mostDevices, what)
 	case n <= have:

@@ -392,3 +392,37 @@ func (d *drawer) curves(name string, n int, shift float64) *Lot {
 	}
 	return l
 }
+
+// Five lots of one kind: how often any of the ten comparisons is called a difference.
+func TestSimulatedTrend(t *testing.T) {
+	n := runs() / 2
+	for cell, size := range []int{6, 20} {
+		d := draws(10, uint64(cell))
+		called, overlap := 0.0, 0.0
+		for range n {
+			var lots []Lot
+			for _, name := range []string{"A", "B", "C", "D", "E"} {
+				lots = append(lots, *d.lot(name, size, 3, 0.08))
+			}
+			tr, err := TrendOf(lots, plain())
+			if err != nil {
+				t.Fatal(err)
+			}
+			p, low, high := 1.0, math.Inf(-1), math.Inf(1)
+			for _, q := range tr.Pairs {
+				p, low, high = min(p, q.PAdjusted), max(low, q.Low), min(high, q.High)
+			}
+			if p <= 0.05 {
+				called++
+			}
+			if low > 0 || high < 0 {
+				overlap++
+			}
+		}
+		called, overlap = called/float64(n), overlap/float64(n)
+		t.Logf("5 lots of %d: any of 10 comparisons called a difference %.2f %%, by the intervals %.2f %%", size, called*100, overlap*100)
+		if called > bar(0.06, n) || overlap > bar(0.06, n) {
+			t.Errorf("called %.4f, %.4f, want at most 0.06", called, overlap)
+		}
+	}
+}

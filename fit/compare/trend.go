@@ -22,7 +22,7 @@ const settled = 20
 // By, Level, Repeatability are used. Result: lots by the time of their first reading,
 // those without one last and by name. A lot with fewer than 3 values, or with more
 // that never reach the current than a trimmed mean leaves out, has a NaN centre.
-// Limits are NaN for fewer than 3 centres, and do not know how many devices stand
+// Limits are those of the lots with a time, NaN for fewer than 3 centres, and do not know how many devices stand
 // behind each. Every pair: difference of trimmed means with p by Yuen's test,
 // adjusted by Holm, and intervals that hold together at opt.Level by Bonferroni; what
 // session and meters add is in them as in [Lots], control parts and temperature are
@@ -49,23 +49,24 @@ func TrendOf(lots []Lot, opt Options) (Trend, error) {
 	if !slices.ContainsFunc(r.lots, func(l trendLot) bool { return len(l.v.plain) > 0 }) {
 		return Trend{}, fmt.Errorf("in any lot: %w", ErrNothing)
 	}
-	t := Trend{By: opt.By, Provisional: len(lots) < settled}
+	t := Trend{By: opt.By, Provisional: true}
 	var centres []float64
 	for _, l := range r.lots {
 		t.Untimed = t.Untimed || l.v.lot.At == ""
 		t.Lots = append(t.Lots, TrendLot{Name: l.v.lot.Name, At: l.v.lot.At, DateCode: l.v.lot.DateCode, N: len(l.v.plain),
 			Centre: l.mean.Mean, U: l.mean.SE, SD: stats.SD(l.v.plain)})
-		if !math.IsNaN(l.mean.Mean) {
+		if !math.IsNaN(l.mean.Mean) && l.v.lot.At != "" {
 			centres = append(centres, l.mean.Mean)
 		}
 	}
+	t.Provisional = len(centres) < settled
 	t.Centre, t.Low, t.High = stats.Mean(centres), math.NaN(), math.NaN()
 	if len(centres) >= fewest {
 		lim := stats.IndividualsChart(centres).Level
 		t.Low, t.High = lim.Low, lim.High
 	}
 	for i := range t.Lots {
-		t.Lots[i].Outside = t.Lots[i].Centre < t.Low || t.Lots[i].Centre > t.High
+		t.Lots[i].Outside = t.Lots[i].At != "" && (t.Lots[i].Centre < t.Low || t.Lots[i].Centre > t.High)
 	}
 	t.Pairs = r.pairs()
 	t.Text = r.words(&t)
@@ -175,19 +176,33 @@ func (r *run) words(t *Trend) []string {
 	}
 	switch {
 	case math.IsNaN(t.Low):
-		text = append(text, fmt.Sprintf("no control limits: they need %d lots with a centre", fewest))
+		text = append(text, fmt.Sprintf("no control limits: they need %d lots with a centre and a time", fewest))
 	case len(outside) > 0:
 		text = append(text, fmt.Sprintf("outside the control limits of %s to %s: %s", volts(t.Low), volts(t.High), strings.Join(outside, ", ")))
 	default:
 		text = append(text, fmt.Sprintf("all centres lie within the control limits of %s to %s", volts(t.Low), volts(t.High)))
 	}
-	if t.Provisional && !math.IsNaN(t.Low) {
-		text = append(text, fmt.Sprintf("the limits rest on %d lots and are provisional: %d settle them", len(t.Lots), settled))
+	if !math.IsNaN(t.Low) {
+		text = append(text, "control limits judge the run, whether a lot falls out of what its forerunners varied by; whether two lots are the same is judged by the tests")
 	}
-	if t.Untimed {
-		text = append(text, "some lot has no time: the order, on which the limits rest, is not known")
+	if t.Provisional && !math.IsNaN(t.Low) {
+		text = append(text, fmt.Sprintf("the limits rest on %s and are provisional: %d settle them", stand(timed(t), "lot", "lots"), settled))
+	}
+	if t.Untimed && !math.IsNaN(t.Low) {
+		text = append(text, "lots without a time have no place in the run: they are in no control limit")
 	}
 	return text
+}
+
+// timed counts the lots that control limits can rest on.
+func timed(t *Trend) int {
+	n := 0
+	for _, l := range t.Lots {
+		if l.At != "" && !math.IsNaN(l.Centre) {
+			n++
+		}
+	}
+	return n
 }
 
 // overall asks whether all lots are alike, by Welch's analysis of variance, or by

@@ -58,11 +58,13 @@ type Options struct {
 	Margin        float64 // V, largest shift that does not matter; NaN: none
 	MarginSet     string  // Before, After or None
 	Pairing       Pairing
+	Spots         bool    // no sweep of either lot is a curve: none are missed
 	Repeatability float64 // V, standard deviation of measuring one device again, inserted anew; NaN: not known
 	Tempco        float64 // V/K at the current compared at, taken off the shift where temperatures are known; NaN: none
 	Beta          float64 // A/V², gain factor for lots whose curves were not measured; NaN: none
-	LimitLow      float64 // V, data-sheet limits of the quantity; NaN: none
+	LimitLow      float64 // V, data-sheet limits of V_GS(th), whatever is compared; NaN: none
 	LimitHigh     float64
+	Judged        string // what a specification says of the rule ByLimits; "": LimitLow and LimitHigh decide
 	SendBack      string // the user's stored rule: "", "outside-limits" or "outside-margin"
 }
 
@@ -95,11 +97,13 @@ type Counts struct {
 }
 
 // Secondary is a test beside the primary one. PAdjusted is by Holm over all
-// secondary tests of the comparison.
+// secondary tests of the comparison. What control parts and temperature take off is
+// taken off here too; the error common to whole lots is in none of them.
 type Secondary struct {
 	Test      string
 	Statistic float64
-	P         float64 // two-sided; NaN: could not be had
+	Shift     Interval // V, that the test goes with, at the level of the comparison; NaN: none
+	P         float64  // two-sided; NaN: could not be had
 	PAdjusted float64
 }
 
@@ -128,6 +132,7 @@ type Band struct {
 	Level    float64
 	Critical float64 // multiple of the standard error used
 	Differs  bool    // somewhere the band leaves 0 out
+	Changes  bool    // the shift changes from the lowest current to the highest
 	Text     string  // one sentence
 }
 
@@ -173,6 +178,7 @@ type Comparison struct {
 	MarginSet            string
 	Verdict              Verdict
 	Sentence             string  // the verdict in one sentence, with its numbers
+	Beside               string  // where primary and secondary tests or curves differ: which counts; "": they do not
 	NotExcluded          float64 // V, largest shift that the interval does not exclude
 	More                 int     // devices a lot that would tell; 0: no number given
 	MoreText             string  // what that number assumes, or why there is none
@@ -219,9 +225,9 @@ type Trend struct {
 	By          fit.Key
 	Lots        []TrendLot // ascending by At; lots without a time last, by name
 	Untimed     bool       // some lot has no time: the order is not known
-	Centre      float64    // V, mean of the lots' centres
+	Centre      float64    // V, mean of the centres of the lots with a time; NaN: none
 	Low, High   float64    // V, control limits by the moving range of the centres; NaN below three lots
-	Provisional bool       // fewer than 20 lots
+	Provisional bool       // fewer than 20 lots that the limits rest on
 	Pairs       []PairOfLots
 	Text        []string
 }

@@ -87,7 +87,7 @@ func TestComparisonIsTold(t *testing.T) {
 		"By serial, 30 pairs. 34 serials stand in both lots and their values go together. The pairs alone, with nothing taken off and without the error common to a lot: +14.3 mV, 95 % interval +10.3 to +18.3 mV. The differences scatter by 1.1 mV (1 sd, n = 30).",
 		"with a value (n) 35 30", "above: never reach the current 2 1", "with neither 1 0", "flagged: counted, never left out for that 4 5", "excluded 3 7", "control parts, in no statistic 6 8",
 		"centre (trimmed mean) 3.384 V (n = 35) 3.396 V (n = 30)", "parts in the lot 160 144", "how the sample was taken every fourth part of the tubes, in tube order every fourth",
-		"invented test on ranks 412", "invented test on whole distributions 0.31 n/a n/a", "They decide nothing", "take it as it is With the old network", "send back No rule of yours is broken. outside-margin: not met.", "re-adjust The trimmers move by 15 mV at the centre. none stored",
+		"invented test on ranks +12.1 mV (+3.1 to +21.2 mV) 412", "invented test on whole distributions 0.31 n/a n/a", "They decide nothing", "take it as it is With the old network", "send back No rule of yours is broken. outside-margin: not met.", "re-adjust The trimmers move by 15 mV at the centre. none stored",
 		"Only in the reference, 1 device : D39", "Only in this lot, 2 devices : X1, X2", "Heating was not checked in either lot.", "Populations Reference: one. This lot: one.",
 		s.Compared.Reference.Hash, "fitted by gatesill 0.1.0", "Conditions of both lots", "reference load: drain fed through R_L from V_DD", "Instruments of the reference",
 	} {

@@ -20,18 +20,29 @@ const (
 	maxPairs  = 1000
 )
 
+// shiftHead heads shifts with their intervals.
+func shiftHead(level float64) string {
+	if !isNumber(level) {
+		return "shift"
+	}
+	return "shift (" + report.LevelWords(level) + " interval)"
+}
+
 func (p *pair) tables(d *compared) {
 	d.Counts = p.counts()
 	c := p.c
 	if len(c.Secondary) > 0 {
-		t := &table{Caption: "Secondary tests", Heads: []head{{"test", false}, {"statistic", true}, {"p", true}, {"p adjusted", true}},
-			Note: "They decide nothing: the verdict is that of the primary test alone. p adjusted is by Holm over all secondary tests."}
+		t := &table{Caption: "Secondary tests", Heads: []head{{"test", false}, {rich(shiftHead(c.Level)), true}, {"statistic", true}, {"p", true}, {"p adjusted", true}},
+			Note: "They decide nothing: the verdict is that of the primary test alone. p adjusted is by Holm over all secondary tests. The error that whole lots share is in none of them."}
 		for _, s := range c.Secondary {
-			stat := report.NotAvailable
+			stat, shift := report.NotAvailable, ""
+			if isNumber(s.Shift.Value) {
+				shift = report.ShiftWords(s.Shift.Value, s.Shift.Low, s.Shift.High, "V")
+			}
 			if isNumber(s.Statistic) {
 				stat = strconv.FormatFloat(s.Statistic, 'g', 4, 64)
 			}
-			t.Rows = append(t.Rows, []cell{{Text: rich(s.Test), Head: true}, number(stat), number(report.ProbabilityWords(s.P)), number(report.ProbabilityWords(s.PAdjusted))})
+			t.Rows = append(t.Rows, []cell{{Text: rich(s.Test), Head: true}, number(shift), number(stat), number(report.ProbabilityWords(s.P)), number(report.ProbabilityWords(s.PAdjusted))})
 		}
 		d.Secondary = t
 	}

@@ -11,7 +11,6 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/compare"
 	"gatesill/report"
-	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -86,12 +85,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if err != nil {
 		return err
 	}
-	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
-		env.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
-	}
-	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
-		env.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
-	}
+	env.doubt(&ref, rq)
 	sheets := make([]report.Sheet, len(candidates))
 	for i, name := range candidates {
 		if sheets[i], err = env.candidateSheet(ctx, &ref, name, o); err != nil {
@@ -134,10 +128,36 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if err != nil || !rq.Fail {
 		return err
 	}
+	return env.failOf(sheets)
+}
+
+// doubt warns of numbers that are taken as given and hardly meant.
+func (e *Env) doubt(ref *report.Sheet, rq CompareRequest) {
+	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
+		e.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
+	}
+	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
+		e.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
+	}
+}
+
+// failOf ends in [ExitNo] when a lot differs or is outside the margin. Too few to tell
+// is no 'no', and no 'yes' either: that is said.
+func (e *Env) failOf(sheets []report.Sheet) error {
+	var open []string
+	no := false
 	for i := range sheets {
-		if sheets[i].Compared.No() {
-			return &Failure{Code: ExitNo}
+		c := sheets[i].Compared
+		no = no || c.No()
+		if c.Verdict == compare.TooFew {
+			open = append(open, report.Clean(c.Candidate))
 		}
+	}
+	if open != nil {
+		e.warn("--fail: %s: too few to tell is no 'no', and nothing is shown either way", strings.Join(open, ", "))
+	}
+	if no {
+		return &Failure{Code: ExitNo}
 	}
 	return nil
 }
@@ -224,6 +244,8 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 	}
 	opt.Margin, opt.MarginSet = m.volts, m.set
 	opt.Repeatability = repeatabilityOf(ref, cand, by)
+	opt.Spots = onlySpots(ref) && onlySpots(cand)
+	opt.Judged = report.SendBackJudged(cand)
 	opt.SendBack = first(cand.Lot.SendBack, ref.Lot.SendBack)
 	out.MarginFrom = m.text
 	out.Comparison, err = compare.Lots(comparedLot(ref), comparedLot(cand), opt)
@@ -231,8 +253,10 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, failed("", "lot %q against %q: %w", cand.Lot.Name, ref.Lot.Name, err)
 	}
 	out.Warnings = append(warnings, out.Warnings...)
-	if onlySpots(ref) && onlySpots(cand) { // nobody expects curves of them
-		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
+	if out.Paired != nil {
+		changed, words := changedPairs(ref, cand, by, rq)
+		out.Warnings = append(out.Warnings, changed...)
+		out.Sentence += words
 	}
 	return out, nil
 }
@@ -263,7 +287,7 @@ func someAbove(s *report.Sheet) bool {
 
 // optionsOf are the choices that hold for every candidate.
 func optionsOf(ref *report.Sheet, by fit.Key, rq CompareRequest) compare.Options {
-	low, high := limitsOf(ref, by)
+	low, high := limitsOf(ref, fit.KeyVgsth) // of V_GS(th), whatever is compared
 	return compare.Options{
 		By: by, Level: rq.Level / 100, Margin: math.NaN(), MarginSet: compare.None, Pairing: rq.pairing(), Repeatability: math.NaN(),
 		Tempco: rq.Tempco.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
@@ -284,41 +308,6 @@ func limitsOf(s *report.Sheet, by fit.Key) (low, high float64) {
 	return s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
 }
 
-// runOfLots lays the lots of the part out in time: the two that were compared, and
-// every other that was measured as they were; nil where there is no other.
-func (e *Env) runOfLots(ctx context.Context, ref, cand *report.Sheet, by fit.Key, o SheetOptions) (*compare.Trend, error) {
-	var names []string
-	if err := e.view(ctx, func(tx *store.Tx) (err error) {
-		names, err = tx.LotsOfPart(ref.Part.ID)
-		return err
-	}); err != nil {
-		return nil, err
-	}
-	lots := []compare.Lot{comparedLot(ref), comparedLot(cand)}
-	for _, name := range names {
-		if name == ref.Lot.Name || name == cand.Lot.Name {
-			continue
-		}
-		s, err := e.candidateSheet(ctx, ref, name, o)
-		if err != nil {
-			return nil, err
-		}
-		if differ, _ := unlikeLots(ref, &s, by, false); differ == nil && hasAny(&s, by) {
-			lots = append(lots, comparedLot(&s))
-		} else {
-			e.detail("lot %s is not in the run of lots: it was not measured as lot %s was", report.Clean(name), report.Clean(ref.Lot.Name))
-		}
-	}
-	if len(lots) < 3 {
-		return nil, nil
-	}
-	t, err := compare.TrendOf(lots, optionsOf(ref, by, CompareRequest{Level: 95}))
-	if err != nil {
-		return nil, failed("", "the run of lots: %w", err)
-	}
-	return &t, nil
-}
-
 // alikeParts refuses lots of different parts. A lot for which no part was named
 // may be of any: that is said.
 func alikeParts(ref, cand *report.Sheet) ([]fit.Warning, error) {
@@ -327,7 +316,7 @@ func alikeParts(ref, cand *report.Sheet) ([]fit.Warning, error) {
 	}
 	if ref.Part.Channel != cand.Part.Channel || ref.Part.Mode != cand.Part.Mode {
 		kind := func(s *report.Sheet) string { return fmt.Sprintf("%s-channel %s", s.Part.Channel, s.Part.Mode) }
-		return nil, failed("gatesill lot edit "+Quote(cand.Lot.Name)+" --channel "+string(ref.Part.Channel)+" --mode "+string(ref.Part.Mode)+", if that is so",
+		return nil, failed("gatesill lot list shows which lots are of one part",
 			"lots of different parts: %s is %s, %s is %s", ref.Lot.Name, kind(ref), cand.Lot.Name, kind(cand))
 	}
 	var unnamed []string
@@ -337,7 +326,7 @@ func alikeParts(ref, cand *report.Sheet) ([]fit.Warning, error) {
 		}
 	}
 	if unnamed == nil {
-		return nil, failed("gatesill lot edit "+Quote(cand.Lot.Name)+" --part "+Quote(ref.Part.Name)+", if they are the same",
+		return nil, failed("gatesill lot list shows which lots are of one part; gatesill lot edit "+Quote(cand.Lot.Name)+" --part "+Quote(ref.Part.Name)+" only if the part was entered wrongly",
 			"lots of different parts: %s is of %s, %s of %s", ref.Lot.Name, ref.Part.Name, cand.Lot.Name, cand.Part.Name)
 	}
 	return []fit.Warning{{Code: fit.CodePartNotNamed, Text: fmt.Sprintf(

@@ -54,7 +54,10 @@ func marginOf(ref, cand *report.Sheet, rq CompareRequest) (margin, error) {
 	if from.MarginSetAt != "" && from.MarginSetAt < at {
 		m.set, when = compare.Before, "before"
 	}
-	m.text = how + fmt.Sprintf("stored with lot %s on %s, %s the %s of lot %s", from.Name, day(from.MarginSetAt), when, of, cand.Lot.Name)
+	event := map[string]string{
+		fromReading: "first reading of lot " + cand.Lot.Name, fromSession: "start of the session of lot " + cand.Lot.Name, fromImport: "import of lot " + cand.Lot.Name,
+	}[of]
+	m.text = how + fmt.Sprintf("stored with lot %s on %s, %s the %s", from.Name, day(from.MarginSetAt), when, event)
 	if d := day(at); d != "" {
 		m.text += " on " + d
 	}

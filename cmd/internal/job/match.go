@@ -242,9 +242,9 @@ func (e *Env) search(ctx context.Context, st *stock) (found *match.Matching, end
 	limit := st.opt.TimeLimit
 	p := newProgress(e, "searching for better sets, at most "+limit.String())
 	done := make(chan struct{})
-	ended := make(chan struct{})
+	stopped := make(chan struct{})
 	go func() {
-		defer close(ended)
+		defer close(stopped)
 		tick := time.NewTicker(200 * time.Millisecond)
 		defer tick.Stop()
 		for start := time.Now(); ; {
@@ -260,7 +260,7 @@ func (e *Env) search(ctx context.Context, st *stock) (found *match.Matching, end
 	found, err = match.Match(ctx, st.members, st.opt)
 	ended = found != nil && found.Bound.Kind == match.LowerBound && time.Since(start) >= limit
 	close(done)
-	<-ended
+	<-stopped
 	p.Done()
 	e.detail("%s matched in %v", count(len(st.members), "device"), time.Since(start).Round(time.Millisecond))
 	return found, ended, err

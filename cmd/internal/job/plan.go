@@ -240,7 +240,9 @@ func sampleOf(s *report.Sheet, key fit.Key) plan.Lot {
 			values = append(values, q.Value)
 		}
 	}
-	return plan.LotOf(s.Lot.Name, values)
+	l := plan.LotOf(s.Lot.Name, values)
+	l.Of, l.Mixed = report.KeyOf(key).Symbol, s.Spread.Populations > 1
+	return l
 }
 
 func hasSpread(l plan.Lot) error {
@@ -306,13 +308,13 @@ func (e *Env) marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
 
 // tellPlanning warns of what in a lot does not fit what is planned with.
 func (e *Env) tellPlanning(kind string, s *report.Sheet) {
-	if kind == "find" {
+	switch kind {
+	case "find":
 		return
-	}
-	if s.Spread.Populations > 1 {
-		e.warn("lot %s looks like two populations: what rests on one normal distribution does not hold for it [%s]", report.Clean(s.Lot.Name), fit.CodeTwoPopulations)
-	}
-	if kind != "accept" && kind != "capability" && kind != "cover" {
+	case "shift", "same":
+		if s.Spread.Populations > 1 {
+			e.warn("lot %s looks like two populations: its standard deviation is not that of one [%s]", report.Clean(s.Lot.Name), fit.CodeTwoPopulations)
+		}
 		return
 	}
 	dead := 0

@@ -68,7 +68,7 @@ type Result struct {
 	Dual     []int64   // by vertex: the doubled dual
 	Blossoms []Blossom // the odd sets with positive dual; any two are one in the other or apart
 	Line     []int     // all vertices, in an order in which every blossom is a range
-	Penalty  int64     // doubled cost at which leaving out any vertex was weighed; 0: costs were given, or every vertex had to be covered
+	Penalty  int64     // doubled cost at which leaving out any vertex was weighed; 0 when costs were given
 
 	// Witness proves for Bottleneck that the pairs lighter than Worst do not
 	// suffice; nil for the other aims. Its weights are 0, its Penalty is 2, and

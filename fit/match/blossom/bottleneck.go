@@ -147,7 +147,7 @@ func (c *Cloud) Bottleneck(ctx context.Context) (*Result, error) {
 	if c.Cost != nil {
 		return nil, fmt.Errorf("%w: costs of leaving out and the worst pair have no common measure", ErrGraph)
 	}
-	t, edges, err := c.begin()
+	t, edges, err := c.begin(ctx)
 	if err != nil {
 		return nil, err
 	}

@@ -41,10 +41,12 @@ type Cloud struct {
 	Cost []int64
 }
 
-const (
-	nearby    = 9 // neighbours of each point in the first graph
-	perVertex = 4 // edges that a round adds for each point at most
-)
+// perVertex is how many edges a round adds for each point at most.
+const perVertex = 4
+
+// nearby gives how many neighbours of each point are in the first graph: more
+// in more quantities, where fewer of all points are far.
+func nearby(dims int) int { return 6 + 2*dims }
 
 // Match gives the matching of least total distance: with all points in pairs
 // but the one of an odd number, or, with Within, as many as can be; or, with
@@ -53,7 +55,7 @@ const (
 // the result, which may be nil, is the last matching that was reached, without
 // proof.
 func (c *Cloud) Match(ctx context.Context) (*Result, error) {
-	t, edges, err := c.begin()
+	t, edges, err := c.begin(ctx)
 	if err != nil {
 		return nil, err
 	}
@@ -70,7 +72,7 @@ func (c *Cloud) within() int64 {
 	return math.MaxInt64
 }
 
-func (c *Cloud) begin() (*tree, []Edge, error) {
+func (c *Cloud) begin(ctx context.Context) (*tree, []Edge, error) {
 	n := len(c.At)
 	for i, x := range c.At {
 		if len(x) != len(c.At[0]) {
@@ -86,11 +88,14 @@ func (c *Cloud) begin() (*tree, []Edge, error) {
 		return nil, nil, fmt.Errorf("%w: %d costs for %d points", ErrGraph, len(c.Cost), n)
 	}
 	t := newTree(c.At)
-	edges := c.sparse(t, nearby)
-	if err := c.check(edges); err != nil {
+	if n == 0 {
+		return t, nil, nil
+	}
+	edges, err := c.sparse(ctx, t, nearby(len(c.At[0])))
+	if err != nil {
 		return nil, nil, err
 	}
-	return t, edges, nil
+	return t, edges, c.check(edges)
 }
 
 // check refuses distances that are negative or too great.
@@ -106,13 +111,16 @@ func (c *Cloud) check(edges []Edge) error {
 // sparse gives the edges from every point to its k nearest and along the order
 // of the tree, which is a way through all points by short steps: with it
 // alone, all points can be paired.
-func (c *Cloud) sparse(t *tree, k int) []Edge {
+func (c *Cloud) sparse(ctx context.Context, t *tree, k int) ([]Edge, error) {
 	var keys []uint64
 	add := func(a, b int32) {
 		keys = append(keys, uint64(min(a, b))<<32|uint64(max(a, b)))
 	}
 	var near []neighbour
 	for p := range int32(len(c.At)) {
+		if p&255 == 0 && ctx.Err() != nil {
+			return nil, ctx.Err()
+		}
 		near = t.nearest(p, k, near[:0])
 		for _, q := range near {
 			add(p, q.i)
@@ -130,7 +138,7 @@ func (c *Cloud) sparse(t *tree, k int) []Edge {
 			edges = append(edges, Edge{u, v, w})
 		}
 	}
-	return edges
+	return edges, nil
 }
 
 // match solves on edges and adds the pairs up to within that the duals find
@@ -189,7 +197,7 @@ func (c *Cloud) wanting(ctx context.Context, t *tree, s *solver, within, factor 
 			return nil, ctx.Err()
 		}
 		n := 0
-		t.visitClose(p, s.y[p], in, c.Norm, c.Scale, within, factor, func(q int32) {
+		t.visitClose(p, in, c.Norm, c.Scale, within, factor, func(q int32) {
 			w := c.Distance(int(p), int(q))
 			k := 2*w*factor - s.y[p] - s.y[q]
 			if k >= 0 || w > within {

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"math"
 	"math/rand/v2"
+	"os"
 	"testing"
 )
 
@@ -178,5 +179,79 @@ func TestCloudWithinAndCost(t *testing.T) {
 	}
 	if several < 5 {
 		t.Errorf("more than one point left out in %d cases only", several)
+	}
+}
+
+// TestCloudOfAnyDistance: the distance has nothing to do with the coordinates
+// and does not keep the triangle inequality.
+func TestCloudOfAnyDistance(t *testing.T) {
+	rng := rand.New(rand.NewPCG(6, 1))
+	for _, n := range []int{2, 9, 50, 81} {
+		c := cloud(rng, "normal", "L2", n, 2)
+		d := make([][]int64, n)
+		for i := range d {
+			d[i] = make([]int64, n)
+			for j := range i {
+				d[i][j] = rng.Int64N(1000)
+				d[j][i] = d[i][j]
+			}
+		}
+		c.Scale, c.Distance = 0, func(i, j int) int64 { return d[i][j] }
+		for _, within := range []int64{0, 300, 20} {
+			c.Within = within
+			r, err := c.Match(context.Background())
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := Verify(n, c.Pairs(), nil, r); err != nil {
+				t.Errorf("%d points within %d: %v", n, within, err)
+			}
+			b, err := c.Bottleneck(context.Background())
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := VerifyBottleneck(n, c.Pairs(), r.LeftOut, b); err != nil {
+				t.Errorf("%d points within %d: worst pair: %v", n, within, err)
+			}
+			c.Cost = constant(n, int64(15))
+			l, err := c.Match(context.Background())
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := Verify(n, c.Pairs(), c.Cost, l); err != nil {
+				t.Errorf("%d points within %d, costs: %v", n, within, err)
+			}
+			c.Cost = nil
+		}
+	}
+}
+
+// TestCloudOfThousands: as large as lots come; 5,000 and more with GATESILL_LONG.
+func TestCloudOfThousands(t *testing.T) {
+	sizes := []int{1200}
+	if os.Getenv("GATESILL_LONG") != "" {
+		sizes = []int{4999, 5000, 12_000}
+	}
+	rng := rand.New(rand.NewPCG(7, 1))
+	for _, n := range sizes {
+		for i, kind := range kinds {
+			norm := []string{"L1", "L2", "max"}[i%3]
+			c := cloud(rng, kind, norm, n, 2)
+			r, err := c.Match(context.Background())
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := Verify(n, c.Pairs(), nil, r); err != nil {
+				t.Errorf("%d points, %s: %v", n, kind, err)
+			}
+			b, err := c.Bottleneck(context.Background())
+			if err != nil {
+				t.Fatal(err)
+			}
+			if err := VerifyBottleneck(n, c.Pairs(), n%2, b); err != nil {
+				t.Errorf("%d points, %s: worst pair: %v", n, kind, err)
+			}
+			t.Logf("%d points, %s %s: total %d, worst %d; worst pair first: total %d, worst %d; %+v", n, kind, norm, r.Total, r.Worst, b.Total, b.Worst, r.Work)
+		}
 	}
 }

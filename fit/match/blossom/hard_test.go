@@ -7,8 +7,7 @@ import (
 	"testing"
 )
 
-// hard draws graphs and clouds that are unlike those of benches: what the
-// solver does badly should show here.
+// hardGraph draws edges with no geometry in them.
 func hardGraph(rng *rand.Rand, n, degree int, span int64) []Edge {
 	var edges []Edge
 	for range n * degree / 2 {
@@ -20,6 +19,8 @@ func hardGraph(rng *rand.Rand, n, degree int, span int64) []Edge {
 	return edges
 }
 
+// BenchmarkHardGraphs and BenchmarkHardClouds have graphs unlike those of benches:
+// what the solver does badly should show here.
 func BenchmarkHardGraphs(b *testing.B) {
 	for _, c := range []struct {
 		n, degree int

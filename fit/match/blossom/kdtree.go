@@ -10,9 +10,11 @@ import (
 // the search for neighbours and the search for pairs that duals find wanting.
 type tree struct {
 	at    [][]float64
-	order []int32 // points; every cell is a range of it
-	place []int32 // by point: where it stands in order
-	cells []cell  // cell i has the halves of itself at i+1 and at far
+	order []int32   // points; every cell is a range of it
+	place []int32   // by point: where it stands in order
+	flat  []float64 // coordinates of the points as they stand in order
+	duals []int64   // by point
+	cells []cell    // cell i has the halves of itself at i+1 and at far
 	lows  []float64
 	highs []float64 // by cell and coordinate: its box
 }
@@ -25,7 +27,9 @@ type cell struct {
 	first, last int32 // where its points stand in the nest of blossoms
 }
 
-const cellSize = 8
+// cellSize gives how many points are not halved further: looking at a box costs
+// as much as looking at several points, and tells little in many coordinates.
+func cellSize(dims int) int { return max(8, 3*dims) }
 
 func newTree(at [][]float64) *tree {
 	t := &tree{at: at, order: make([]int32, len(at)), place: make([]int32, len(at))}
@@ -37,6 +41,7 @@ func newTree(at [][]float64) *tree {
 	}
 	for p, i := range t.order {
 		t.place[i] = int32(p)
+		t.flat = append(t.flat, at[i]...)
 	}
 	return t
 }
@@ -56,7 +61,7 @@ func (t *tree) build(from, to int) {
 			widest, width = k, hi-lo
 		}
 	}
-	if to-from <= cellSize {
+	if to-from <= cellSize(len(t.at[0])) {
 		return
 	}
 	if widest >= 0 { // else all are at one place
@@ -68,10 +73,9 @@ func (t *tree) build(from, to int) {
 	t.build(mid, to)
 }
 
-// beyond says whether all points in the box of cell c are farther from x than
-// most, by the norm.
-func (t *tree) beyond(c int, x []float64, most float64, norm Norm) bool {
-	lows, highs := t.lows[c*len(x):][:len(x)], t.highs[c*len(x):][:len(x)]
+// outOf says whether all points of a box are farther from x than most, by the norm.
+func outOf(x, lows, highs []float64, most float64, norm Norm) bool {
+	lows, highs = lows[:len(x)], highs[:len(x)]
 	var sum float64
 	if norm == Straight {
 		most *= most
@@ -93,6 +97,34 @@ func (t *tree) beyond(c int, x []float64, most float64, norm Norm) bool {
 		}
 		if sum > most {
 			return true
+		}
+	}
+	return false
+}
+
+// beyond says whether y is farther from x than most, by the norm.
+func beyond(x, y []float64, most float64, norm Norm) bool {
+	y = y[:len(x)]
+	var sum float64
+	switch norm {
+	case Straight:
+		most *= most
+		for k, v := range x {
+			if sum += (v - y[k]) * (v - y[k]); sum > most {
+				return true
+			}
+		}
+	case Sum:
+		for k, v := range x {
+			if sum += math.Abs(v - y[k]); sum > most {
+				return true
+			}
+		}
+	default:
+		for k, v := range x {
+			if math.Abs(v-y[k]) > most {
+				return true
+			}
 		}
 	}
 	return false
@@ -135,15 +167,23 @@ func (t *tree) nearest(p int32, k int, out []neighbour) []neighbour {
 			visit(far, df)
 			return
 		}
-		for _, q := range t.order[e.from:e.to] {
+		least := math.Inf(1)
+		if len(out) == k {
+			least = out[k-1].d
+		}
+		for s := e.from; s < e.to; s++ {
+			q := t.order[s]
 			if q == p {
 				continue
 			}
 			var d float64
-			for i, v := range t.at[q] {
-				d += (v - x[i]) * (v - x[i])
+			y := t.flat[int(s)*len(x):][:len(x)]
+			for i, v := range x {
+				if d += (v - y[i]) * (v - y[i]); d >= least {
+					break
+				}
 			}
-			if len(out) == k && d >= out[k-1].d {
+			if d >= least {
 				continue
 			}
 			if len(out) < k {
@@ -154,6 +194,9 @@ func (t *tree) nearest(p int32, k int, out []neighbour) []neighbour {
 				out[j] = out[j-1]
 			}
 			out[j] = neighbour{d, q}
+			if len(out) == k {
+				least = out[k-1].d
+			}
 		}
 	}
 	visit(0, 0)
@@ -162,6 +205,7 @@ func (t *tree) nearest(p int32, k int, out []neighbour) []neighbour {
 
 // setDuals notes the greatest dual in every cell, and its range in the nest.
 func (t *tree) setDuals(y []int64, in *nest) {
+	t.duals = y
 	for c := len(t.cells) - 1; c >= 0; c-- {
 		e := &t.cells[c]
 		if e.far != 0 {
@@ -181,29 +225,31 @@ func (t *tree) setDuals(y []int64, in *nest) {
 // than within and for which factor times the doubled distance may be less than
 // the sum of the two duals without the blossoms around both. A distance is at
 // least scale times the norm of the difference, less one for rounding.
-func (t *tree) visitClose(p int32, y int64, in *nest, norm Norm, scale float64, within, factor int64, see func(q int32)) {
+func (t *tree) visitClose(p int32, in *nest, norm Norm, scale float64, within, factor int64, see func(q int32)) {
 	x := t.at[p]
+	dims := len(x)
 	after := t.place[p] + 1
 	pos := in.pos[p]
+	// most gives how far apart two points may be in coordinates when their
+	// duals leave room for a doubled distance; none at all if below 0.
+	most := func(room int64) float64 {
+		m := float64(within) + 1
+		if factor != 0 {
+			m = min(m, float64(room)/2+1)
+		} else if room <= 0 {
+			m = -1
+		}
+		return m / scale * (1 + 1e-9)
+	}
 	var visit func(c int)
 	visit = func(c int) {
 		e := &t.cells[c]
 		if e.to <= after {
 			return
 		}
-		room := y + e.most - in.between(min(pos, e.first), max(pos, e.last))
-		if factor == 0 && room <= 0 {
-			return
-		}
 		if scale > 0 {
-			most := float64(within) + 1
-			if factor != 0 {
-				most = min(most, float64(room)/2+1)
-			}
-			if most <= 0 {
-				return
-			}
-			if t.beyond(c, x, most/scale*(1+1e-9), norm) {
+			m := most(t.duals[p] + e.most - in.between(min(pos, e.first), max(pos, e.last)))
+			if m < 0 || outOf(x, t.lows[c*dims:], t.highs[c*dims:], m, norm) {
 				return
 			}
 		}
@@ -213,7 +259,13 @@ func (t *tree) visitClose(p int32, y int64, in *nest, norm Norm, scale float64, 
 			return
 		}
 		for i := max(e.from, after); i < e.to; i++ {
-			see(t.order[i])
+			q := t.order[i]
+			if scale > 0 {
+				if m := most(t.duals[p] + t.duals[q]); m < 0 || beyond(x, t.flat[int(i)*dims:][:dims], m, norm) {
+					continue
+				}
+			}
+			see(q)
 		}
 	}
 	visit(0)

@@ -147,14 +147,17 @@ func VerifyBottleneck(n int, pairs Pairs, fewest int, r *Result) error {
 	if err := Verify(n, pairs.UpTo(r.Worst), nil, r); err != nil {
 		return err
 	}
-	if r.LeftOut >= n-1 {
+	if r.LeftOut == n {
 		return nil // no pair at all
 	}
 	if r.Witness == nil {
 		return fmt.Errorf("%w: no witness against lighter pairs", ErrProof)
 	}
-	w := *r.Witness
-	d, err := dualsOf(n, &w)
+	w := r.Witness
+	if w.Penalty <= 0 {
+		return fmt.Errorf("%w: witness against lighter pairs: penalty %d", ErrProof, w.Penalty)
+	}
+	d, err := dualsOf(n, w)
 	if err != nil {
 		return err
 	}

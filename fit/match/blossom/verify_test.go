@@ -183,6 +183,10 @@ func TestVerifyBottleneckRefuses(t *testing.T) {
 	if err := VerifyBottleneck(n, c.Pairs(), 0, r); !errors.Is(err, ErrProof) {
 		t.Errorf("empty witness: %v", err)
 	}
+	r.Witness = &Result{Dual: constant(n, int64(-4)), Line: good.Line, Penalty: -2}
+	if err := VerifyBottleneck(n, c.Pairs(), 0, r); !errors.Is(err, ErrProof) {
+		t.Errorf("witness at a price below 0: %v", err)
+	}
 	r.Witness = nil
 	if err := VerifyBottleneck(n, c.Pairs(), 0, r); !errors.Is(err, ErrProof) {
 		t.Errorf("no witness: %v", err)
