@@ -318,7 +318,7 @@ func near(ctx context.Context, st *stock, found *match.Matching) []match.Set {
 // long that may take: it is a word beside the sets.
 const (
 	moreRuns = 200
-	moreTime = 2 * time.Second
+	moreTime = time.Second
 )
 
 // more asks what buying more devices would give, where sets are limited by a
