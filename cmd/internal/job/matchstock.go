@@ -9,6 +9,7 @@ import (
 	"time"
 
 	"gatesill/fit"
+	"gatesill/fit/compare"
 	"gatesill/fit/match"
 	"gatesill/report"
 	"gatesill/store/record"
@@ -141,12 +142,13 @@ func (st *stock) joins(s *report.Sheet) (notes []fit.Warning, why string, err er
 // gather makes members of the devices of all lots.
 func (st *stock) gather(rq MatchRequest) {
 	for _, s := range st.sheets {
-		digits, in := lastDigitsOf(s), s.InSet()
+		digits, in, of := lastDigitsOf(s), s.InSet(), newSittings(s)
+		moved := 0
 		for i := range s.Devices {
 			d := &s.Devices[i]
 			m := match.Member{
 				Name: d.Name, Lot: s.Lot.Name, Package: d.Package, Side: d.Side, DateCode: first(d.DateCode, s.Lot.DateCode),
-				PChannel: s.Part.Channel == record.PChannel, Out: keptBack(d), Step: displayStep(d, digits), Result: d.Result,
+				PChannel: s.Part.Channel == record.PChannel, Out: keptBack(d, of), Step: displayStep(d, digits), Result: d.Result,
 			}
 			if set := in[d.ID]; set != nil {
 				m.Locked = report.SetWords(set)
@@ -155,7 +157,14 @@ func (st *stock) gather(rq MatchRequest) {
 				m.Result.GmIdle = fit.None()
 				m.Result.GmIdle.Value = g
 			}
+			if m.Out == "" && d.Result.Has(fit.CodeSweepsDisagree) {
+				moved++
+			}
 			st.members, st.ids = append(st.members, m), append(st.ids, d.ID)
+		}
+		if moved > 0 {
+			st.notes = append(st.notes, fit.Warning{Code: fit.CodeSweepsDisagree, Text: fmt.Sprintf(
+				"of %s of lot %s the sweeps of different dates disagree, and the first up sweep counts; gatesill gauge tells whether all moved together", count(moved, "device"), s.Lot.Name)})
 		}
 	}
 }
@@ -165,14 +174,13 @@ func (st *stock) gather(rq MatchRequest) {
 var unsettled = []struct{ code, why string }{
 	{fit.CodeHeating, "it had not settled: it warmed up or drifted while it was measured"},
 	{fit.CodeOscillation, "it oscillated while it was measured"},
-	{fit.CodeSweepsDisagree, "its sweeps disagree"},
 	{fit.CodeCurrentMismatch, "its current and the load resistor disagree"},
 	{fit.CodePrefixLost, "its current was read with the wrong prefix"},
 }
 
 // keptBack says why a device is not given out whatever it is matched by; "" where
 // it is. Those without a value, and those that leak, the matching itself leaves out.
-func keptBack(d *report.Device) string {
+func keptBack(d *report.Device, of sittings) string {
 	switch {
 	case d.Role == record.Control:
 		return "control part, kept for checking the bench"
@@ -186,7 +194,17 @@ func keptBack(d *report.Device) string {
 			return u.why
 		}
 	}
+	if d.Result.Has(fit.CodeSweepsDisagree) && !severalDates(d, of) {
+		return "its sweeps disagree"
+	}
 	return ""
+}
+
+// severalDates reports whether a device was measured in several sessions, or on
+// several days: then its sweeps may differ by what the bench and the room did.
+func severalDates(d *report.Device, of sittings) bool {
+	all := of.of(d)
+	return slices.ContainsFunc(all, func(s compare.Sitting) bool { return s.Session != all[0].Session })
 }
 
 // displayStep is the coarsest last digit in which the gate voltages of a device were
