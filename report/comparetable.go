@@ -33,9 +33,9 @@ func CompareTable(w io.Writer, c ComparedLots, style Style) error {
 		}
 		comparedLot(p, &c.Candidates[i], ofAll, style)
 	}
-	if c.Trend != nil && len(c.Candidates) > 0 {
+	if c.Trend != nil {
 		p.line("")
-		p.line("More of one lot: gatesill compare %s %s", Clean(c.Reference.Lot.Name), Clean(c.Candidates[0].Lot.Name))
+		p.line("More of a lot is told where it alone is compared.")
 	}
 	if len(ofAll) > 0 {
 		p.line("")
@@ -145,7 +145,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	}
 	if c.Curves != nil {
 		fact(p, "curves", Clean(Sentence(c.Curves.Text)), style)
-		if len(c.Curves.Points) > 0 && (c.Curves.Changes || c.Curves.Differs && c.Verdict == compare.NoDifference) {
+		if len(c.Curves.Points) > 0 && (c.Curves.Changes || c.Curves.Differs && c.Verdict == compare.NoDifference && c.ForTemp == 0) {
 			p.line("")
 			p.grid(bandGrid(c.Curves, style))
 		}

@@ -22,7 +22,10 @@ func (s *Sheet) SpecFields() []Field {
 	}
 	out := []Field{{"limits", s.specLimits()}}
 	if sp.Why != "" {
-		out = append(out, Field{"no verdict", Clean(sp.Why)})
+		out = append(out, Field{"no verdict", Clean(sp.Why) + noVerdictStep(sp.Why)})
+		if sp.Outside.N > 0 { // what holds of the lot needs no verdict on its devices
+			return append(out, s.partsFields()...)
+		}
 		if sp.SendBack {
 			out = append(out, Field{"send back", s.sendBackLine()})
 		}
@@ -41,6 +44,14 @@ func (s *Sheet) SpecFields() []Field {
 		out = append(out, Field{"uncertainty", text})
 	}
 	return append(out, s.partsFields()...)
+}
+
+// noVerdictStep is what to do where no device can be judged, "" where the reason says it.
+func noVerdictStep(why string) string {
+	if why == lot.NoAbsolute {
+		return "; give the accuracy of the meters in a bench file (gatesill help bench-file), or a guard band in volts (lot edit --guard 20mV)"
+	}
+	return ""
 }
 
 // specLimits are the limits with their condition.
@@ -96,7 +107,11 @@ func (s *Sheet) GuardRule() string {
 			text += ", in the median " + FormatTwoDigits(g, "V")
 		}
 	}
-	return text + ", " + setWords[sp.GuardSet]
+	text += ", " + setWords[sp.GuardSet]
+	if sp.NoRoom() {
+		text += "; it leaves no room between the limits: no device can pass"
+	}
+	return text
 }
 
 func medianGuard(sp *lot.Specification) float64 {
@@ -186,7 +201,7 @@ func (s *Sheet) undecided() string {
 	}
 	var parts []string
 	for _, g := range GroupNames(list) {
-		parts = append(parts, namesWords(g.Names, 12)+": "+Clean(g.Text))
+		parts = append(parts, namesWords(g.Names, 12)+": "+Clean(g.Text)+noVerdictStep(g.Text))
 	}
 	return strings.Join(parts, "; ")
 }
@@ -233,7 +248,7 @@ func (s *Sheet) partsFields() []Field {
 	var out []Field
 	ppk := "declined, because " + sp.Ppk.Declined
 	if sp.Ppk.Declined == "" {
-		ppk = fmt.Sprintf("at least %.2f (%s confidence; %.2f in these %d devices)", sp.Ppk.Lower, percent(sp.Ppk.Level), sp.Ppk.Value, sp.Ppk.N)
+		ppk = fmt.Sprintf("at least %s (%s confidence; %s in these %d devices)", index(sp.Ppk.Lower), percent(sp.Ppk.Level), index(sp.Ppk.Value), sp.Ppk.N)
 	}
 	if sp.Ppk.Of != "all parts" && sp.Ppk.Declined == "" {
 		ppk += ", " + sp.Ppk.Of + " only"

@@ -62,6 +62,7 @@ func comparedFlags(fs *pflag.FlagSet, rq *job.CompareRequest) {
 	fs.BoolVar(&rq.Paired, "paired", false, "the same devices measured twice: pair them by serial")
 	fs.BoolVar(&rq.Unpaired, "unpaired", false, "never pair them (default: where serials and values go together)")
 	num(fs, &rq.Tempco, "tempco", "V/K", "slope of the gate voltage, taken off between lots of known temperatures: -4mV/K")
+	num(fs, &rq.TempcoU, "tempco-u", "V/K", "standard uncertainty of that slope (default: 20 % of it)")
 	num(fs, &rq.Beta, "beta", "A/V2", "gain factor of lots whose curves were not measured")
 }
 

@@ -50,7 +50,7 @@ func (c *comparing) besideWords() string {
 	const counts = "; the verdict is that of the primary test alone, which was chosen beforehand: the rest is a reason to measure more"
 	switch {
 	case o.Verdict == NoDifference:
-		if o.Curves != nil && o.Curves.Differs {
+		if o.Curves != nil && o.Curves.Differs && o.ForTemp == 0 { // the band is without what was taken off for that
 			apart = append(apart, "the band of the curves")
 		}
 		if len(apart) > 0 {
@@ -72,12 +72,14 @@ func (c *comparing) besideLots() {
 	rank := stats.MannWhitney(cand, ref)
 	ks := stats.KolmogorovSmirnov(cand, ref)
 	bf := stats.BrownForsythe(finiteOnly(cand), finiteOnly(ref))
+	f := stats.VarianceRatio(finiteOnly(cand), finiteOnly(ref), c.opt.Level)
 	c.out.Secondary = []Secondary{
 		{Test: "means: Welch's t", Statistic: w.Statistic, P: w.P, Shift: Interval{w.Estimate, w.Low, w.High}},
 		{Test: exactly("ranks: Mann-Whitney, shift of Hodges and Lehmann", rank.Exact), Statistic: rank.Statistic, P: rank.P,
 			Shift: reached(stats.HodgesLehmann(cand, ref, c.opt.Level))},
 		{Test: exactly("distributions: Kolmogorov-Smirnov", ks.Exact), Statistic: ks.Statistic, P: ks.P, Shift: none()},
 		{Test: "spreads: Brown-Forsythe", Statistic: bf.Statistic, P: bf.P, Shift: none()},
+		{Test: "variances: F, for normal values", Statistic: f.Statistic, P: f.P, Shift: none(), Ratio: Interval{f.Estimate, f.Low, f.High}},
 	}
 	if math.IsNaN(s.Ratio) {
 		c.out.SpreadTest = "none: it needs 4 devices a lot, all with a value, that do not all read the same"

@@ -74,6 +74,7 @@ type comparing struct {
 	pairs     *pairs  // nil: not by serial
 	shift     estimate
 	tied      ties
+	tempHeld  bool   // the common error holds what temperatures are uncertain by, or the lots share it
 	whyNot    string // there is no shift to be had: one sentence
 	out       Comparison
 }
@@ -200,6 +201,8 @@ func (c *comparing) takeOff() {
 		return
 	}
 	c.out.ForTemp = c.opt.Tempco * warmer
+	c.out.TempU = c.opt.tempU(warmer, !c.tempHeld)
+	c.shift.with(c.out.TempU, math.Inf(1))
 	c.shift.shift -= c.out.ForTemp
 	c.out.Raw = raw
 }

@@ -53,6 +53,11 @@ func TestWhichCounts(t *testing.T) {
 			t.Errorf("%s: %q", v, got)
 		}
 	}
+	c.ForTemp = 0.03 // not taken off the band
+	if got := say(NoDifference); strings.Contains(got, "band") {
+		t.Error(got)
+	}
+	c.ForTemp = 0
 	c.Secondary[0].PAdjusted = 0.2
 	if got := say(Differs); !strings.Contains(got, "no test of means or ranks sees a difference") {
 		t.Error(got)

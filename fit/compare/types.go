@@ -61,6 +61,7 @@ type Options struct {
 	Spots         bool    // no sweep of either lot is a curve: none are missed
 	Repeatability float64 // V, standard deviation of measuring one device again, inserted anew; NaN: not known
 	Tempco        float64 // V/K at the current compared at, taken off the shift where temperatures are known; NaN: none
+	TempcoU       float64 // V/K, its standard uncertainty; 0 or NaN: [SlopeShare] of it
 	Beta          float64 // A/V², gain factor for lots whose curves were not measured; NaN: none
 	LimitLow      float64 // V, data-sheet limits of V_GS(th), whatever is compared; NaN: none
 	LimitHigh     float64
@@ -105,6 +106,7 @@ type Secondary struct {
 	Shift     Interval // V, that the test goes with, at the level of the comparison; NaN: none
 	P         float64  // two-sided; NaN: could not be had
 	PAdjusted float64
+	Ratio     Interval // of variances, candidate over reference, that the test goes with; zero: none
 }
 
 // Common is the error that whole lots share through session and meters, as it
@@ -184,6 +186,7 @@ type Comparison struct {
 	MoreText             string  // what that number assumes, or why there is none
 	Raw                  float64 // V, shift before control parts or temperature were taken off; NaN: nothing was
 	ForTemp              float64 // V, taken off the shift because the lots were not equally warm; 0: nothing was
+	TempU                float64 // V, standard uncertainty of what was taken off for the temperature, in the interval; 0: nothing was
 	Spread               Interval
 	SpreadTest           string
 	Secondary            []Secondary

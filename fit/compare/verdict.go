@@ -108,8 +108,8 @@ func (c *comparing) offWords() string {
 		return fmt.Sprintf("; %s of control parts were taken off (%s), before that the shift was %s",
 			shiftWords(o.Common.Offset), stand(o.Common.Controls, "part", "parts"), shiftWords(o.Raw))
 	case !math.IsNaN(o.Raw):
-		return fmt.Sprintf("; %s were taken off for the temperature (%.1f °C against %.1f °C at %s mV/K), before that the shift was %s",
-			shiftWords(o.ForTemp), c.cand.lot.Temp, c.ref.lot.Temp, signed(c.opt.Tempco), shiftWords(o.Raw))
+		return fmt.Sprintf("; %s were taken off for the temperature (%.1f °C against %.1f °C at %s mV/K%s), before that the shift was %s",
+			shiftWords(o.ForTemp), c.cand.lot.Temp, c.ref.lot.Temp, signed(c.opt.Tempco), c.tempUWords(), shiftWords(o.Raw))
 	}
 	return ""
 }

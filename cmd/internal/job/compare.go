@@ -22,6 +22,7 @@ type CompareRequest struct {
 	Paired   bool          // by serial
 	Unpaired bool          // never by serial; neither: where serials and values go together
 	Tempco   record.Num    // V/K
+	TempcoU  record.Num    // V/K, its standard uncertainty; not known: a typical share of it
 	Beta     record.Num    // A/V², gain factor of lots whose curves were not measured
 	Fail     bool          // end in [ExitNo] when a lot differs or is outside the margin
 }
@@ -54,8 +55,11 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	if b, ok := rq.Beta.Get(); ok && !(b > 0) {
 		return Usage("--beta 3.8", "--beta: %g A/V², must be above 0", b)
 	}
-	if t, ok := rq.Tempco.Get(); ok && math.Abs(t) > greatestTempco {
-		return Usage("--tempco -4mV/K", "--tempco: %g V/K is more than any gate voltage moves; -4 mV/K is written -4mV/K", t)
+	if err := checkTempco(rq.Tempco); err != nil {
+		return err
+	}
+	if u, ok := rq.TempcoU.Get(); ok && !(u > 0 && rq.Tempco.IsKnown()) {
+		return Usage("--tempco -4mV/K --tempco-u 1mV/K", "--tempco-u: must be above 0, and go with --tempco")
 	}
 	if rq.Paired && rq.Unpaired {
 		return Usage("leave one of them out", "--paired and --unpaired exclude each other")
@@ -70,10 +74,6 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	}
 	return nil
 }
-
-// greatestTempco is a slope beyond which a unit was forgotten: gate voltages move
-// by -7 to +5 mV/K (common practice, no source).
-const greatestTempco = 0.1 // V/K
 
 // Compare holds one lot or several against a reference lot. With rq.Fail it ends
 // in [ExitNo] when one of them differs or is outside the margin.
@@ -114,9 +114,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 		if err != nil {
 			return failed("", "the run of lots: %w", err)
 		}
-		if rq.Tempco.IsKnown() {
-			trend.Text = append(trend.Text, "the run of lots and its pairs are as read: the temperature is taken off the shifts against the reference lot only")
-		}
+		trend.Text = append(trend.Text, fmt.Sprintf("the verdicts of the %d lots against lot %s stand each on its own and are not adjusted for their number; the p and intervals of the pairs are", len(sheets), ref.Lot.Name))
 		cl.Trend = &trend
 	}
 	env.detail("%s compared in %v", count(1+len(sheets), "lot"), time.Since(start).Round(time.Millisecond))
@@ -133,12 +131,8 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 
 // doubt warns of numbers that are taken as given and hardly meant.
 func (e *Env) doubt(ref *report.Sheet, rq CompareRequest) {
-	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
-		e.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
-	}
-	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
-		e.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
-	}
+	e.doubtMargin(rq.Margin)
+	e.doubtTempco(rq.Tempco, ref.Part)
 }
 
 // failOf ends in [ExitNo] when a lot differs or is outside the margin. Too few to tell
@@ -214,6 +208,9 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	for _, s := range []*report.Sheet{ref, cand} {
+		if n := len(s.Devices); n > 0 && !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded }) {
+			return out, failed("gatesill device include "+Quote(s.Devices[0].Name)+" --lot "+Quote(s.Lot.Name), "lot %q: %s excluded", s.Lot.Name, allOf(n))
+		}
 		if !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded && len(d.Sweeps) > 0 }) {
 			return out, failed("gatesill import "+Quote(s.Lot.Name)+" FILE", "lot %q: nothing is measured of it", s.Lot.Name)
 		}
@@ -261,6 +258,14 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 	return out, nil
 }
 
+// allOf names all devices of a lot.
+func allOf(n int) string {
+	if n == 1 {
+		return "its one device is"
+	}
+	return fmt.Sprintf("all %d devices are", n)
+}
+
 // repeatabilityOf is the greater of what is known of the lots' benches, V; NaN where
 // nothing is.
 func repeatabilityOf(ref, cand *report.Sheet, by fit.Key) float64 {
@@ -290,7 +295,7 @@ func optionsOf(ref *report.Sheet, by fit.Key, rq CompareRequest) compare.Options
 	low, high := limitsOf(ref, fit.KeyVgsth) // of V_GS(th), whatever is compared
 	return compare.Options{
 		By: by, Level: rq.Level / 100, Margin: math.NaN(), MarginSet: compare.None, Pairing: rq.pairing(), Repeatability: math.NaN(),
-		Tempco: rq.Tempco.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
+		Tempco: rq.Tempco.Float(), TempcoU: rq.TempcoU.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
 	}
 }
 
