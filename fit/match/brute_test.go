@@ -329,7 +329,7 @@ func TestAnyPricesBound(t *testing.T) {
 			}
 			v := make([]int64, g.n)
 			for i := range v {
-				v[i] = int64((rng.NormFloat64()*0.3 + 1) * float64(b.total[z]) / float64(z*k) * float64(g.size[i]))
+				v[i] = int64(inPrice * (rng.NormFloat64()*0.3 + 1) * float64(b.total[z]) / float64(z*k) * float64(g.size[i]))
 			}
 			low, _, ok := g.bound(v, z, g.late)
 			if !ok || low > b.total[z] {
