@@ -48,7 +48,10 @@ func (e *Env) stockOf(ctx context.Context, lots []string, rq MatchRequest) (*sto
 		if why != "" {
 			return nil, failed("gatesill sweep measures one of them again as the other was; match them one by one, or leave one out", "lots %q and %q: %s; their devices cannot be held against each other", ref.Lot.Name, name, why)
 		}
-		st.sheets, st.notes = append(st.sheets, &s), append(st.notes, notes...)
+		st.sheets = append(st.sheets, &s)
+		for _, w := range notes {
+			st.note(w)
+		}
 	}
 	st.gather(rq)
 	st.dissipation(rq)
@@ -163,7 +166,7 @@ func (st *stock) gather(rq MatchRequest) {
 			st.members, st.ids = append(st.members, m), append(st.ids, d.ID)
 		}
 		if moved > 0 {
-			st.notes = append(st.notes, fit.Warning{Code: fit.CodeSweepsDisagree, Text: fmt.Sprintf(
+			st.note(fit.Warning{Code: fit.CodeSweepsDisagree, Text: fmt.Sprintf(
 				"of %s of lot %s the sweeps of different dates disagree, and the first up sweep counts; gatesill gauge tells whether all moved together", count(moved, "device"), s.Lot.Name)})
 		}
 	}
@@ -238,8 +241,30 @@ func (st *stock) dissipation(rq MatchRequest) {
 	}
 }
 
+// note adds a warning, once.
+func (st *stock) note(w fit.Warning) {
+	if !slices.Contains(st.notes, w) {
+		st.notes = append(st.notes, w)
+	}
+}
+
+// ofLots adds what there is to say of the lots themselves: sweeps taken under unlike
+// conditions, and two populations, whose devices may agree in one number only.
+func (st *stock) ofLots() {
+	for _, s := range st.sheets {
+		if w, ok := unlike(s); ok && len(st.sheets) == 1 { // of several it is told where they are held together
+			st.note(w)
+		}
+		if by := st.opt.By; s.Spread.Populations > 1 && len(by) == 1 && by[0].Key != match.KeyCurve {
+			st.note(fit.Warning{Code: fit.CodeTwoPopulations, Text: fmt.Sprintf(
+				"lot %s holds two populations: devices of both may read alike at one current and differ at every other; --by vgs-idle,gm-idle or --by curve keeps them apart", s.Lot.Name)})
+		}
+	}
+}
+
 // doubts adds what the differences between devices hold besides the devices.
 func (st *stock) doubts() {
+	st.ofLots()
 	names := map[string]bool{}
 	metersSeen := map[string]bool{}
 	var lots []string
@@ -286,7 +311,7 @@ func (st *stock) doubts() {
 		default:
 			text += ", by about " + report.FormatTwoDigits(median(between), "V") + " each, which alike does not count"
 		}
-		st.notes = append(st.notes, fit.Warning{Code: fit.CodeOtherSession, Text: text})
+		st.note(fit.Warning{Code: fit.CodeOtherSession, Text: text})
 	}
 }
 
