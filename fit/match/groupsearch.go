@@ -11,8 +11,8 @@ import (
 const usualLimit = 30 * time.Second
 
 // matchGroups looks for sets where only a search can, and for a bound of how good
-// they are.
-func (p *problem) matchGroups(ctx context.Context) *answer {
+// they are; with exact, few items are divided in every way instead.
+func (p *problem) matchGroups(ctx context.Context, exact bool) *answer {
 	limit := p.opt.TimeLimit
 	if limit <= 0 {
 		limit = usualLimit
@@ -27,7 +27,7 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 	if p.opt.Aim == Worst {
 		g.tighten(share(0.35))
 	}
-	if g.few() {
+	if exact && g.few() {
 		g.exactFor(p.opt.Aim, a)
 		return a
 	}

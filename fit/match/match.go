@@ -14,7 +14,8 @@ import (
 // quantities or by the whole curve, pairs of n-channel with p-channel devices, and
 // fours of two packages are exact, by matchings of least weight whose prices are
 // checked anew for every pair. Sets of three and more in several quantities, and of
-// single devices mixed with packages, are searched for; a lower bound, for which a
+// single devices mixed with packages, are exact up to 20 of them, beyond which they
+// are searched for; a lower bound, for which a
 // proof was carried out, says how much better any other answer can be at most.
 //
 // Members are not modified. The result is the same on every run, except where the
@@ -79,7 +80,7 @@ func (p *problem) solve(ctx context.Context) (*answer, error) {
 	if c := p.couples(); c != nil {
 		return p.matchPairs(ctx, c)
 	}
-	return p.matchGroups(ctx), nil
+	return p.matchGroups(ctx, true), nil
 }
 
 // oneLine is the exact answer in one quantity.
