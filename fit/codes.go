@@ -58,6 +58,7 @@ const (
 	CodeMethodNotValid     = "method-not-valid"     // no value by the method asked for
 	CodeOutsideLimits      = "outside-limits"       // outside the data sheet's limits
 	CodeCommonUnknown      = "common-error-unknown" // what the bench adds to the difference of two lots
+	CodeOtherSession       = "other-session"        // devices matched across sessions
 
 	// Of the bench, by devices put in again.
 	CodeTooFewRepeats   = "too-few-repeats"
@@ -264,6 +265,9 @@ var Codes = []CodeInfo{
 	{CodeCommonUnknown,
 		"Lots were compared that were not measured in one session with the same meters, and what that adds to their difference is not known.",
 		"Give the meters' accuracy in a bench file, measure some control parts with both lots, or measure both in one session."},
+	{CodeOtherSession,
+		"Devices are matched that were measured in different sessions: what the devices of a session share, such as the offsets of the meters and the temperature, enters the difference between devices of two sessions.",
+		"Measure them in one session, or some parts again with the others, and compare."},
 	{CodeExcluded,
 		"The device was left out of every statistic by hand.",
 		"See why with gatesill device show; gatesill device include lets it count again."},

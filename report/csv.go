@@ -86,13 +86,14 @@ func WriteDevicesCSV(w io.Writer, s Sheet) error {
 	}
 	for _, h := range []string{
 		"test_current_A", "idle_current_A", "method", "warnings", "flagged", "flags", "flag_text", "bin", "maybe_bin",
-		"sweeps", "measured_at", "circuit", "rl_ohm", "vdd_V", "vds_V", "temp_degC", "note",
+		"sweeps", "measured_at", "circuit", "rl_ohm", "vdd_V", "vds_V", "temp_degC", "note", "set", "set_state", "set_unit",
 	} {
 		r.text(h)
 	}
 	r.end()
 	verdicts := s.Verdicts()
 	bin, maybe := s.BinOf()
+	in := s.InSet()
 	for i := range s.Devices {
 		d := &s.Devices[i]
 		for _, t := range []string{s.Lot.Name, s.Part.Name, d.Name, d.Package, d.Side, d.DateCode, d.Marking, d.Tube, string(d.Role), string(d.State()), d.Reason()} {
@@ -132,6 +133,13 @@ func WriteDevicesCSV(w io.Writer, s Sheet) error {
 		r.num(c.VDS)
 		r.num(c.Temp)
 		r.text(d.Note)
+		set := in[d.ID]
+		if set == nil {
+			set = &record.Set{}
+		}
+		r.text(set.Name)
+		r.text(string(set.State))
+		r.text(set.Unit)
 		r.end()
 	}
 	return b.Flush()

@@ -371,7 +371,8 @@ func DeviceJSON(w io.Writer, f DeviceFile, s Sheet) error {
 		changes = append(changes, changeDocOf(c))
 	}
 	return writeObject(w, member{"schema", Schema}, member{"lot", f.Lot.Name}, member{"device", s.deviceDocOf(d)},
-		member{"role", string(d.Role)}, member{"note", optional(d.Note)}, member{"sweeps", sweeps}, member{"timeline", timelineDocs(&f)}, member{"changes", changes})
+		member{"role", string(d.Role)}, member{"note", optional(d.Note)}, member{"sweeps", sweeps}, member{"timeline", timelineDocs(&f)},
+		member{"sets", storedSetDocs(f.Sets)}, member{"changes", changes})
 }
 
 func changeDocOf(c record.Change) changeDoc {

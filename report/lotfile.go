@@ -13,6 +13,7 @@ type LotFile struct {
 	Devices  []record.Device
 	Sources  []record.Source
 	Sessions []record.Session
+	Sets     []record.Set    // with a device of the lot, by number
 	Changes  []record.Change // of the part and of the lot, ascending by time each
 }
 
@@ -28,6 +29,11 @@ func LotFileText(w io.Writer, f LotFile, style Style) error {
 		p.line("None yet.")
 	} else {
 		p.grid(deviceGrid(f.Devices, style))
+	}
+	if len(f.Sets) > 0 {
+		p.line("")
+		p.line("%s", style.paint("Sets", bold))
+		setList(p, f.Sets, style)
 	}
 	p.line("")
 	p.line("%s", style.paint("Files", bold))
@@ -93,7 +99,7 @@ func LotFileJSON(w io.Writer, f LotFile) error {
 		changes = append(changes, changeDocOf(c))
 	}
 	return writeObject(w, member{"schema", Schema}, member{"lot", f.Lot.Name}, member{"facts", lotRowDocOf(f.LotRow)},
-		member{"devices", devices}, member{"files", sources}, member{"changes", changes})
+		member{"devices", devices}, member{"sets", storedSetDocs(f.Sets)}, member{"files", sources}, member{"changes", changes})
 }
 
 // CodesTable explains every warning and flag code for people.

@@ -157,6 +157,7 @@ type DeviceFile struct {
 	Lot     record.Lot
 	Device  Device
 	Changes []record.Change // ascending by time: of the device and of its sweeps
+	Sets    []record.Set    // that it is or was in, by number
 
 	By       fit.Key        // quantity of the timeline
 	Timeline []gauge.Moment // sitting by sitting; shown from two on
@@ -179,6 +180,9 @@ func DeviceHistory(w io.Writer, f DeviceFile, s Sheet, style Style) error {
 	}, style)
 	if role != "" {
 		p.line("%-22s %s", "role", role)
+	}
+	if len(f.Sets) > 0 {
+		p.line("%-22s %s", "set", setLines(f.Sets))
 	}
 	p.line("%-22s %s", "state", stateCell(d, style))
 	if why := d.Reason(); why != "" {

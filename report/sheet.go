@@ -20,7 +20,8 @@ type Sheet struct {
 	Lot      record.Lot
 	Sources  []record.Source
 	Sessions []record.Session
-	Devices  []Device // every device of the lot, dead and excluded ones too, in natural order of their names
+	Devices  []Device     // every device of the lot, dead and excluded ones too, in natural order of their names
+	Sets     []record.Set // with a device of the lot, by number; released ones too
 
 	SortedBy    fit.Key // quantity that sorting uses
 	TestCurrent float64 // A, at which Vgsth was taken; NaN when there is none
@@ -117,6 +118,19 @@ func (s *Sheet) BinOf() (bin, maybe map[string]string) {
 		}
 	}
 	return bin, maybe
+}
+
+// InSet gives the set, not released, that each device is in, by the device's id.
+func (s *Sheet) InSet() map[string]*record.Set {
+	in := map[string]*record.Set{}
+	for i := range s.Sets {
+		for _, m := range s.Sets[i].Members {
+			if s.Sets[i].State != record.Released {
+				in[m.DeviceID] = &s.Sets[i]
+			}
+		}
+	}
+	return in
 }
 
 // Device is one device with its sweeps and what was made of them.

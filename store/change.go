@@ -3,6 +3,7 @@ package store
 import (
 	"database/sql/driver"
 	"fmt"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -11,12 +12,13 @@ import (
 
 // kind is a table whose rows may be edited, with the audit trail of its edits.
 type kind struct {
-	table   string // also the 'what' of a change
+	table   string
+	what    string // in the audit trail
 	columns []string
 }
 
 func newKind(table, columns string) kind {
-	return kind{table: table, columns: strings.Split(columns, ", ")}
+	return kind{table: table, what: table, columns: strings.Split(columns, ", ")}
 }
 
 // insert adds a row; values belong to k.columns.
@@ -29,8 +31,19 @@ func (k kind) insert(tx *Tx, noun, id, at string, values []any) error {
 // update sets the row of id to values, which belong to k.columns, and enters
 // what differs from old in the audit trail.
 func (k kind) update(tx *Tx, noun, id, reason string, old, values []any) error {
+	return k.updateOf(tx, noun, id, reason, old, values, k.columns)
+}
+
+// updateOf is update for a table of which only some columns may be changed; old and
+// values belong to all of them.
+func (k kind) updateOf(tx *Tx, noun, id, reason string, old, values []any, only []string) error {
 	changed := false
+	var write []any
 	for i, column := range k.columns {
+		if !slices.Contains(only, column) {
+			continue
+		}
+		write = append(write, values[i])
 		before, after := asText(old[i]), asText(values[i])
 		if before == after {
 			continue
@@ -42,15 +55,15 @@ func (k kind) update(tx *Tx, noun, id, reason string, old, values []any) error {
 		if _, ok := values[i].(ref); ok {
 			column = strings.TrimSuffix(column, "_id")
 		}
-		if err := tx.enter(k.table, id, column, before, after, reason); err != nil {
+		if err := tx.enter(k.what, id, column, before, after, reason); err != nil {
 			return err
 		}
 	}
 	if !changed {
 		return nil
 	}
-	query := `UPDATE ` + k.table + ` SET (` + strings.Join(k.columns, ", ") + `) = (` + places(len(values)) + `) WHERE id = ?`
-	return tx.exec(noun, query, append(append([]any{}, values...), id)...)
+	query := `UPDATE ` + k.table + ` SET (` + strings.Join(only, ", ") + `) = (` + places(len(write)) + `) WHERE id = ?`
+	return tx.exec(noun, query, append(write, id)...)
 }
 
 // asText writes a value as the audit trail shows it.
@@ -111,8 +124,8 @@ func scanChange(r row) (c record.Change, err error) {
 	return c, err
 }
 
-// Changes is the audit trail of one part, lot, device or sweep, the oldest
-// first; what is "part", "lot", "device" or "sweep". That it was made is the
+// Changes is the audit trail of one part, lot, device, sweep or set, the oldest
+// first; what is "part", "lot", "device", "sweep" or "set". That it was made is the
 // first entry, with the field "created"; a sweep has no such entry.
 func (tx *Tx) Changes(what, id string) ([]record.Change, error) {
 	return all(tx, "audit trail of "+what+" "+id, scanChange,

@@ -34,7 +34,8 @@ func newRoot() *cobra.Command {
 		Short: "Sort, match and compare power and RF MOSFETs by gate threshold and idle bias",
 		Long: `Gatesill keeps the curves of power and RF MOSFETs by lot and says for each device
 at which gate voltage it turns on, which gate bias gives the idle current, which
-devices stand apart from their lot, and into which bin each goes.
+devices stand apart from their lot, into which bin each goes, and which belong
+together.
 
 A bare number is in SI base units; prefixes and units are taken everywhere:
 2.2m, 2m2, 4k7, 250uA, 50mV.`,
@@ -42,6 +43,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
   gatesill import bag1 curves.csv --circuit diode
   gatesill spread bag1
   gatesill sort bag1 --width 50mV
+  gatesill match bag1 --within 10mV
   gatesill report bag1 -o bag1.html`,
 		SilenceUsage: true, SilenceErrors: true, SuggestionsMinimumDistance: 2,
 		Args: func(cmd *cobra.Command, args []string) error {
@@ -68,7 +70,7 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
 	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (meters --write: write over the file)")
 	root.AddCommand(
-		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env), compareCmd(env), gaugeCmd(env),
+		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env), matchCmd(env), setCmd(env), compareCmd(env), gaugeCmd(env),
 		planCmd(env), reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
 	root.AddCommand(processCmds()...)

@@ -165,7 +165,7 @@ func (d Device) Validate() error {
 type Change struct {
 	At      string // stamp as of [Stamp]
 	Who     string
-	What    string // "part", "lot", "device", "sweep"
+	What    string // "part", "lot", "device", "sweep", "set"
 	ID      string // UUID of the thing changed
 	Field   string // field name, or "created"
 	Old     string

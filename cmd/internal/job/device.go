@@ -77,6 +77,9 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string, tempco record.N
 		if f.Changes, err = tx.Changes("device", d.ID); err != nil {
 			return err
 		}
+		if f.Sets, err = tx.SetsOf(d.ID); err != nil {
+			return err
+		}
 		for _, sw := range f.Device.Sweeps {
 			of, err := tx.Changes("sweep", sw.ID)
 			if err != nil {

@@ -296,6 +296,9 @@ func LotShow(ctx context.Context, env *Env, name string) error {
 		if f.Sessions, err = tx.Sessions(f.Lot.ID); err != nil {
 			return err
 		}
+		if f.Sets, err = tx.Sets(f.Lot.ID); err != nil {
+			return err
+		}
 		sweeps, err := tx.Sweeps(f.Lot.ID, false)
 		if err != nil {
 			return err

@@ -128,6 +128,9 @@ func load(tx *store.Tx, name string) (s report.Sheet, sweeps []record.Sweep, err
 	if s.Sessions, err = tx.Sessions(s.Lot.ID); err != nil {
 		return s, nil, err
 	}
+	if s.Sets, err = tx.Sets(s.Lot.ID); err != nil {
+		return s, nil, err
+	}
 	devices, err := tx.Devices(s.Lot.ID)
 	for _, d := range devices {
 		s.Devices = append(s.Devices, report.Device{Device: d})
