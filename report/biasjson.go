@@ -232,7 +232,7 @@ func biasLineDocOf(b *Bias, l *bias.Line) *biasLineDoc {
 		}
 		if s.Err != nil {
 			n := notHad
-			return &biasStateDoc{n, n, n, []biasOnDoc{}, optional(stateTrouble(l, s.Err))}
+			return &biasStateDoc{n, n, n, []biasOnDoc{}, optional(stateTrouble(s.Err))}
 		}
 		d := &biasStateDoc{Gate: number(s.Gate), Total: number(s.Total), Trimmer: notHad}
 		if n := b.Plan.Network; n != nil {

@@ -37,6 +37,11 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 			p.line("")
 			lineTable(p, b, l, style)
 		}
+		if len(b.Lines) > 1 {
+			p.line("")
+			p.line("%s", style.paint("Bias sheet", bold))
+			p.grid(biasSheetGrid(b, style))
+		}
 		biasNotes(p, b, style)
 		return p.err
 	}
@@ -74,18 +79,26 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 	}
 	if len(pl.Choices) > 0 {
 		p.line("")
-		p.line("%s", style.paint("Resistors for the centre", bold))
+		p.line("%s", style.paint("Resistors for the centre"+middleWords(pl), bold))
 		p.grid(choiceGrid(pl, style))
 	}
 	if len(pl.Bins) > 0 {
 		p.line("")
-		p.line("%s", style.paint("One resistor a bin", bold))
+		p.line("%s", style.paint("One resistor a bin, of "+string(pl.Bins[0].Series)+middleWords(pl), bold))
 		p.grid(biasBinGrid(pl, style))
 	}
 	p.line("")
 	p.grid(unitGrid(b, style))
 	biasNotes(p, b, style)
 	return p.err
+}
+
+// middleWords says what a trimmer is taken for.
+func middleWords(pl *bias.Plan) string {
+	if pl.Network != nil && pl.Network.Trimmer > 0 {
+		return ", the trimmer in its middle"
+	}
+	return ""
 }
 
 func centreFact(pl *bias.Plan) string {
@@ -106,8 +119,7 @@ func bandFact(t *lot.ToleranceBand) string {
 	if t.Declined != "" {
 		return "no interval for the lot: " + Clean(t.Declined)
 	}
-	u := (t.High - t.Low) / 10
-	text := fmt.Sprintf("%s to %s hold %s of %s with %s confidence", withDigits(t.Low, u), withDigits(t.High, u), LevelWords(t.Share), Clean(t.Of), LevelWords(t.Level))
+	text := fmt.Sprintf("%s hold %s of %s with %s confidence", rangeVolts(bias.Range{Low: t.Low, High: t.High}), LevelWords(t.Share), Clean(t.Of), LevelWords(t.Level))
 	if t.Kind == lot.BandNormal {
 		return text + fmt.Sprintf(" (mean ± %s sd, n = %d)", factor(t.Factor), t.N)
 	}
@@ -149,28 +161,33 @@ func thermalFacts(p *printer, t *bias.Thermal, style Style) {
 			from = "that slope and an α of 1.7, typical"
 		}
 		fact(p, "zero point", fmt.Sprintf("about %s at %s, where the current does not change with temperature (overdrive 2κT/α; %s); the idle current lies %s",
-			FormatTwoDigits(t.ZeroCurrent, "A"), withDigits(t.ZeroGate, 0.3), from, side), style)
+			FormatTwoDigits(t.ZeroCurrent, "A"), fmt.Sprintf("%.1f V", t.ZeroGate), from, side), style)
 	}
 }
 
 func sourceWords(ohm float64) string {
 	if ohm > 0 {
-		return FormatGiven(ohm, "Ω") + " in each source"
+		return bias.Ohms(ohm) + " in each source"
 	}
 	return "no source resistors"
 }
 
-func rangeVolts(r bias.Range) string {
-	u := math.Max(1e-3, (r.High-r.Low)/10)
-	return withDigits(r.Low, u) + " to " + withDigits(r.High, u)
+// gateWords writes a gate voltage that was worked out.
+func gateWords(v float64) string {
+	if !isNumber(v) {
+		return NotAvailable
+	}
+	return fmt.Sprintf("%.3f V", v)
 }
+
+func rangeVolts(r bias.Range) string { return fmt.Sprintf("%.3f to %.3f V", r.Low, r.High) }
 
 // nowFacts says what the network gives and whom it serves.
 func nowFacts(p *printer, b Bias, style Style) {
-	pl, n := b.Plan, b.Plan.Now
-	at := "gate voltage " + withDigits(n.Middle, 0.02)
+	n := b.Plan.Now
+	at := "gate voltage " + gateWords(n.Middle)
 	if n.Trimmed {
-		at = "the trimmer reaches " + rangeVolts(n.Reach) + "; in its middle " + withDigits(n.Middle, 0.02)
+		at = "the trimmer reaches " + rangeVolts(n.Reach) + "; in its middle " + gateWords(n.Middle)
 		if n.Given {
 			at = "the trimmer reaches " + rangeVolts(n.Reach) + ", as given"
 		}
@@ -183,11 +200,11 @@ func nowFacts(p *printer, b Bias, style Style) {
 		}
 		fact(p, "tolerances", fmt.Sprintf("%s at worst, ± %s as root-sum-square (%s)", rangeVolts(n.Tolerated), FormatTwoDigits(n.RSS, "V"), strings.Join(parts, ", ")), style)
 		if n.Trimmed {
-			words := rangeVolts(n.Sure)
+			words := "reaches " + rangeVolts(n.Sure) + ", whatever its supply and resistors within their tolerances"
 			if n.Sure.Low > n.Sure.High {
-				words = "no range"
+				words = "no gate voltage is reached by all, with supply and resistors anywhere in their tolerances"
 			}
-			fact(p, "every board", "reaches "+words+", whatever its supply and resistors within their tolerances", style)
+			fact(p, "every board", words, style)
 		}
 	}
 	if n.CoveredBy != "" {
@@ -223,13 +240,9 @@ func nowFacts(p *printer, b Bias, style Style) {
 	if isNumber(n.Share) && len(n.Parts) > 0 {
 		words := fmt.Sprintf("the tolerances make %.0f %% of the variance, the devices the rest", 100*n.Share)
 		if n.Dominant != "" {
-			words += fmt.Sprintf("; the %s dominate%s: sorting gains little until that is better", n.Dominant, map[bool]string{true: "s"}[n.Dominant == "supply"])
+			words += fmt.Sprintf("; they dominate, the %s most of all, and sorting does not mend that", n.Dominant)
 		}
 		fact(p, "share", words, style)
-	}
-	if t := pl.Trim; t != nil && t.Found {
-		fact(p, "re-centred", fmt.Sprintf("for %s: trimmer %s, top %s, bottom %s; used from %s to %s of its travel", rangeVolts(t.Wanted), FormatGiven(t.Network.Trimmer, "Ω"),
-			FormatGiven(t.Network.Top, "Ω"), FormatGiven(t.Network.Bottom, "Ω"), travel(t.From), travel(t.To)), style)
 	}
 }
 

@@ -211,13 +211,14 @@ type BinChoice struct {
 	Choice
 }
 
-// ForBins proposes, for every bin that has devices, the values for its middle; the
-// idle current is that of its devices.
+// ForBins proposes, for every bin that has devices, a value of the finest series for
+// its middle; the idle current is that of its devices.
 func (p *Plan) ForBins(bins []lot.Bin) {
 	n := p.Network
 	if n == nil {
 		return
 	}
+	finest := slices.MaxFunc(p.Series, func(a, b Series) int { return cmp.Compare(len(a.Decade()), len(b.Decade())) })
 	for _, b := range bins {
 		if len(b.Devices) == 0 {
 			continue
@@ -232,7 +233,7 @@ func (p *Plan) ForBins(bins []lot.Bin) {
 				units = append(units, u)
 			}
 		}
-		list := n.choices(p.Series[0], (b.Low+b.High)/2, units)
+		list := n.choices(finest, (b.Low+b.High)/2, units)
 		if len(list) == 0 {
 			continue
 		}

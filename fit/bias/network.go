@@ -113,6 +113,9 @@ func (n *Network) Setting(v float64) float64 {
 // Range is from where to where a voltage lies, V, Low below High by value.
 type Range struct{ Low, High float64 }
 
+// noRange is where nothing is known.
+var noRange = Range{math.NaN(), math.NaN()}
+
 // Holds reports whether v lies in the range, its ends included.
 func (r Range) Holds(v float64) bool { return v >= r.Low-slack && v <= r.High+slack }
 
