@@ -9,6 +9,7 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/bias"
 	"gatesill/fit/lot"
+	"gatesill/store/record"
 )
 
 // Bias is the gate bias of a lot, ready to be laid out.
@@ -110,7 +111,7 @@ func centreFact(pl *bias.Plan) string {
 		text += ", sd " + FormatTwoDigits(pl.SD, "V")
 	}
 	if pl.Above > 0 {
-		text += fmt.Sprintf("; %s more never reach the current", count(pl.Above, "device"))
+		text += fmt.Sprintf("; %d more above, not reaching the current", pl.Above)
 	}
 	return text
 }
@@ -148,7 +149,7 @@ func thermalFacts(p *printer, t *bias.Thermal, style Style) {
 		words += fmt.Sprintf("; at a constant gate voltage the idle current changes by %s %%/K", signed(fmt.Sprintf("%.2g", 100*t.Rate)))
 	}
 	if isNumber(t.Typical) {
-		words += fmt.Sprintf("; typical at an overdrive of %s: %s (%s to %s; common practice, only shown)", FormatTwoDigits(t.Overdrive, "V"), slopeWords(t.Typical), slopeWords(t.TypicalLow), slopeWords(t.TypicalHigh))
+		words += fmt.Sprintf("; typical at an overdrive of %s: %s (%.1f to %.1f; common practice, only shown)", FormatTwoDigits(t.Overdrive, "V"), slopeWords(t.Typical), 1e3*t.TypicalLow, 1e3*t.TypicalHigh)
 	}
 	fact(p, "temperature", words, style)
 	if isNumber(t.ZeroGate) {
@@ -316,15 +317,27 @@ func biasBinGrid(pl *bias.Plan, style Style) grid {
 }
 
 // unitGrid is the sheet of the devices: gate voltage of each, what it draws with the
-// network as it is, where its trimmer has to be.
+// network as it is, where its trimmer has to be, and in one word why something is missing.
 func unitGrid(b Bias, style Style) grid {
 	pl := b.Plan
 	var names, notes, draws, settings []string
 	var values, us []float64
+	states := map[string]string{}
+	for _, d := range b.Sheet.Devices {
+		if states[d.Name] = WordsOf(d.State()).Word; d.State() == fit.Measured {
+			states[d.Name] = "no value"
+		}
+		if d.Role == record.Control {
+			states[d.Name] = "control part"
+		}
+	}
 	for i := range pl.Units {
 		u := &pl.Units[i]
 		names, values, us = append(names, Clean(u.Name)), append(values, u.Gate.Value), append(us, u.Gate.U)
-		note := Clean(u.Why)
+		note := ""
+		if u.Why != "" {
+			note = states[u.Name]
+		}
 		if n := pl.Now; n != nil && n.CoveredBy != "" && u.Gate.Ok() && !u.Covered && u.Counts {
 			note = "outside"
 		}
@@ -347,7 +360,9 @@ func unitGrid(b Bias, style Style) grid {
 		g.cols = append(g.cols, column{head: "idle at " + fmt.Sprintf("%.3f V", n.Middle), cells: draws, right: true, rank: 1},
 			column{head: "trimmer", cells: settings, right: true, rank: 2})
 	}
-	g.cols = append(g.cols, column{head: "note", cells: notes, rank: 3, wrap: 30})
+	if note := (column{head: "note", cells: notes}); !note.empty() {
+		g.cols = append(g.cols, note)
+	}
 	return g
 }
 
@@ -378,7 +393,7 @@ func biasNotes(p *printer, b Bias, style Style) {
 		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones.")
 	}
 	if b.Plan.Now != nil && b.Plan.Now.Trimmed && len(b.Lines) == 0 {
-		notes = append(notes, "trimmer: part of its travel from the end with the least gate voltage, everything else nominal.")
+		notes = append(notes, "trimmer: part of its travel from the end with the gate voltage nearest to 0 V, everything else nominal.")
 	}
 	if t := b.Plan.Thermal; t.Assumed && (isNumber(t.ZeroGate) || len(b.Lines) > 0) {
 		notes = append(notes, "The temperature of the lot is not known: 25 °C is taken.")

@@ -43,9 +43,14 @@ func (p *Plan) choose() {
 
 // choices are the values of one series that bring the gate voltage nearest to v: top
 // changed, bottom changed, and both with their sum within a fifth of what it was.
+// Checked: TestChoicesAreNearest.
 func (n *Network) choices(s Series, v float64, units []*Unit) []Choice {
 	var out []Choice
 	add := func(what string, m Network) {
+		// The same resistors again are no choice more.
+		if slices.ContainsFunc(out, func(c Choice) bool { return c.Network == m }) {
+			return
+		}
 		c := Choice{Series: s, Change: what, Network: m, Gate: m.At(0.5)}
 		c.Off = c.Gate - v
 		c.Idle = spreadAt(units, c.Gate)
@@ -111,29 +116,34 @@ func (n *Network) nearest(values []float64, v float64, set func(m *Network, r fl
 	return best, len(values) > 0
 }
 
-// nearestBoth changes both resistors; of pairs that come as near to v, that with the least change
-// of their sum.
+// nearestBoth changes both resistors; of the pairs within 0.1 mV of the nearest, that
+// with the least change of their sum.
 func (n *Network) nearestBoth(s Series, v float64) (Network, bool) {
 	if !n.Complete() {
 		return *n, false
 	}
 	sum := n.Top + n.Bottom
-	best, off, moved := *n, math.Inf(1), math.Inf(1)
-	share := v / n.Supply
-	for _, b := range s.Around(share*sum, len(s.Decade())/2) {
+	type pair struct {
+		Network
+		off, change float64
+	}
+	var pairs []pair
+	least := math.Inf(1)
+	for _, b := range s.Around(v/n.Supply*sum, len(s.Decade())/2) {
 		m := *n
 		m.Bottom = b
 		m, ok := m.nearestTop(s, v)
-		change := math.Abs(m.Top+m.Bottom-sum) / sum
-		if !ok || change > 0.2 {
+		q := pair{m, math.Abs(m.At(0.5) - v), math.Abs(m.Top+m.Bottom-sum) / sum}
+		if !ok || q.change > 0.2 {
 			continue
 		}
-		d := math.Abs(m.At(0.5) - v)
-		if d < off-1e-4 || d < off+1e-4 && change < moved {
-			best, off, moved = m, d, change
-		}
+		pairs, least = append(pairs, q), math.Min(least, q.off)
 	}
-	return best, !math.IsInf(off, 1)
+	pairs = slices.DeleteFunc(pairs, func(q pair) bool { return q.off > least+1e-4 })
+	if len(pairs) == 0 {
+		return *n, false
+	}
+	return slices.MinFunc(pairs, func(a, b pair) int { return cmp.Compare(a.change, b.change) }).Network, true
 }
 
 // trimmers are the values that trimmers come in, per decade (common practice, no source).
