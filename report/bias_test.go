@@ -66,7 +66,7 @@ func TestBiasJSON(t *testing.T) {
 	require.NoError(t, report.BiasJSON(&out, b))
 	var doc map[string]any
 	require.NoError(t, json.Unmarshal(out.Bytes(), &doc))
-	for _, key := range []string{"schema", "lot", "idle_A", "centre_V", "tolerance_interval", "covered", "choices", "devices", "bins", "lines", "trimmer", "temperature", "against", "ways", "warnings"} {
+	for _, key := range []string{"schema", "lot", "idle_A", "centre_V", "tolerance_interval", "covered", "choices", "devices", "bins", "lines", "trimmer_for_lot", "temperature", "against", "ways", "warnings"} {
 		require.Contains(t, doc, key)
 	}
 	require.Len(t, doc["devices"], len(s.Devices))

@@ -300,7 +300,7 @@ func BiasJSON(w io.Writer, b Bias) error {
 		member{"n", p.N}, member{"above", p.Above}, member{"sd_V", number(p.SD)},
 		member{"tolerance_interval", biasBandDocOf(&p.Band)}, member{"temperature", biasThermalDocOf(&p.Thermal)},
 		member{"covered", covered}, member{"covered_by_every_board", always}, member{"network", biasNowDocOf(p.Now)},
-		member{"choices", choices}, member{"trimmer", biasTrimDocOf(p.Trim)}, member{"bins", bins}, member{"devices", devices},
+		member{"choices", choices}, member{"trimmer_for_lot", biasTrimDocOf(p.Trim)}, member{"bins", bins}, member{"devices", devices},
 		member{"extremes_on_one_line", biasLineDocOf(&b, b.Extremes)}, member{"lines", lines}, member{"against", change}, member{"ways", list(p.Ways())},
 		member{"warnings", append([]fit.Warning{}, b.Warnings...)})
 }

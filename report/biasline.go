@@ -4,9 +4,11 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"gatesill/fit/bias"
+	"gatesill/store/record"
 )
 
 // lineTable writes devices on one gate line: their gate voltage, and what each draws
@@ -100,8 +102,28 @@ func stateFact(p *printer, b Bias, label, how string, l *bias.Line, s *bias.Stat
 		if q.Temp != l.Temp {
 			words += fmt.Sprintf(" at %.0f °C", q.Temp)
 		}
+		words += overLimits(b.Sheet, s)
 	}
 	fact(p, label, words, style)
+}
+
+// overLimits says which limits of the part a line goes beyond.
+func overLimits(sheet *Sheet, s *bias.State) string {
+	text := ""
+	for _, m := range []struct {
+		limit record.Num
+		unit  string
+		of    func(d bias.On) float64
+	}{
+		{sheet.Part.MaxPD, "W", func(d bias.On) float64 { return d.Power }}, {sheet.Part.MaxID, "A", func(d bias.On) float64 { return d.I }},
+		{sheet.Part.MaxTemp, "°C", func(d bias.On) float64 { return d.Temp }},
+	} {
+		limit, ok := m.limit.Get()
+		if ok && slices.ContainsFunc(s.Devices, func(d bias.On) bool { return m.of(d) > limit }) {
+			text += ", beyond the part's limit of " + FormatGiven(limit, m.unit)
+		}
+	}
+	return text
 }
 
 func lineGrid(l *bias.Line, style Style) grid {

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 
 	"gatesill/fit"
@@ -47,7 +48,7 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 		return p.err
 	}
 	p.line("")
-	fact(p, "centre", centreFact(pl), style)
+	fact(p, "centre", centreFact(b), style)
 	fact(p, "band", bandFact(&pl.Band), style)
 	thermalFacts(p, &pl.Thermal, style)
 	if l := b.Extremes; l != nil && l.Cold.Err == nil {
@@ -102,13 +103,23 @@ func middleWords(pl *bias.Plan) string {
 	return ""
 }
 
-func centreFact(pl *bias.Plan) string {
+func centreFact(b Bias) string {
+	pl := b.Plan
 	if !isNumber(pl.Centre) {
 		return "none: half of the devices never reach the current"
 	}
 	text := fmt.Sprintf("%s, the %s of %s", withDigits(pl.Centre, pl.SD/math.Sqrt(float64(pl.N))), pl.By, count(pl.N, "device"))
 	if isNumber(pl.SD) {
 		text += ", sd " + FormatTwoDigits(pl.SD, "V")
+	}
+	flagged := 0
+	for _, v := range b.Sheet.Verdicts() {
+		if v.Flagged && slices.ContainsFunc(pl.Units, func(u bias.Unit) bool { return u.Name == v.Name && u.Counts && u.Gate.Ok() }) {
+			flagged++
+		}
+	}
+	if flagged > 0 {
+		text += fmt.Sprintf("; %d of them flagged (gatesill spread says why)", flagged)
 	}
 	if pl.Above > 0 {
 		text += fmt.Sprintf("; %d more above, not reaching the current", pl.Above)
@@ -322,7 +333,7 @@ func unitGrid(b Bias, style Style) grid {
 	pl := b.Plan
 	var names, notes, draws, settings []string
 	var values, us []float64
-	states := map[string]string{}
+	states, flagged := map[string]string{}, b.Sheet.Verdicts()
 	for _, d := range b.Sheet.Devices {
 		if states[d.Name] = WordsOf(d.State()).Word; d.State() == fit.Measured {
 			states[d.Name] = "no value"
@@ -340,6 +351,9 @@ func unitGrid(b Bias, style Style) grid {
 		}
 		if n := pl.Now; n != nil && n.CoveredBy != "" && u.Gate.Ok() && !u.Covered && u.Counts {
 			note = "outside"
+		}
+		if u.Gate.Ok() && flagged[u.Name].Flagged {
+			note = strings.TrimPrefix(note+", flagged", ", ")
 		}
 		notes = append(notes, note)
 		draw, setting := "", ""
@@ -390,7 +404,7 @@ func biasNotes(p *printer, b Bias, style Style) {
 		if b.AssumedTrimmer && (n.Trimmer > 0 || b.Plan.Trim != nil) {
 			notes = append(notes, fmt.Sprintf("A trimmer's value is taken as ± %.0f %% (common practice; --trimmer-tol says another).", 100*n.TrimTol))
 		}
-		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones.")
+		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones. Everything holds at the V_DS of the readings.")
 	}
 	if b.Plan.Now != nil && b.Plan.Now.Trimmed && len(b.Lines) == 0 {
 		notes = append(notes, "trimmer: part of its travel from the end with the gate voltage nearest to 0 V, everything else nominal.")
