@@ -94,7 +94,7 @@ func reachDocs(list []plan.Reach) rows {
 
 func shiftMembers(s *plan.Shift) []member {
 	return []member{
-		{"lot", optional(s.Lot.Name)}, {"shift_V", number(s.Shift)}, {"sd_V", number(s.SD)}, {"risk", number(s.Risk)}, {"confidence", number(s.Confidence)},
+		{"lot", optional(s.Lot.Name)}, {"quantity", optional(s.Lot.Of)}, {"shift_V", number(s.Shift)}, {"sd_V", number(s.SD)}, {"risk", number(s.Risk)}, {"confidence", number(s.Confidence)},
 		{"n", known(s.N)}, {"needed_n", known(s.Needed)}, {"needed_n_plain_means", known(s.NeededT)},
 		{"power", number(s.Power)}, {"power_plain_means", number(s.PowerT)}, {"sees", reachDocs(s.Smallest)},
 		{"sd_high_V", number(s.SDHigh)}, {"needed_n_sd_high", known(s.NeededHigh)},
@@ -103,7 +103,7 @@ func shiftMembers(s *plan.Shift) []member {
 
 func sameMembers(s *plan.Same) []member {
 	return []member{
-		{"lot", optional(s.Lot.Name)}, {"margin_V", number(s.Margin)}, {"sd_V", number(s.SD)}, {"shift_V", number(s.Shift)}, {"risk", number(s.Risk)},
+		{"lot", optional(s.Lot.Name)}, {"quantity", optional(s.Lot.Of)}, {"margin_V", number(s.Margin)}, {"sd_V", number(s.SD)}, {"shift_V", number(s.Shift)}, {"risk", number(s.Risk)},
 		{"level", number(s.Level)}, {"n", known(s.N)}, {"needed_n", known(s.Needed)}, {"needed_n_plain_means", known(s.NeededT)},
 		{"few_n", s.Few}, {"few_shows", number(s.Chance)}, {"few_shows_plain_means", number(s.ChanceT)}, {"shows", reachDocs(s.Smallest)},
 		{"sd_high_V", number(s.SDHigh)}, {"needed_n_sd_high", known(s.NeededHigh)},
@@ -137,10 +137,10 @@ func coverMembers(c *plan.Cover) []member {
 		intervals = append(intervals, planIntervalDoc{rule, number(iv.Low), number(iv.High), number(iv.K), number(iv.Confidence)})
 	}
 	return []member{
-		{"lot", optional(c.Lot.Name)}, {"share", number(c.Share)}, {"confidence", number(c.Confidence)}, {"n", known(c.N)},
+		{"lot", optional(c.Lot.Name)}, {"quantity", optional(c.Lot.Of)}, {"share", number(c.Share)}, {"confidence", number(c.Confidence)}, {"n", known(c.N)},
 		{"needed_n_two_limits", known(c.FreeBoth)}, {"needed_n_one_limit", known(c.FreeOne)},
 		{"share_two_limits", number(c.ShareBoth)}, {"share_one_limit", number(c.ShareOne)},
-		{"normal_p", number(c.Normality.P)}, {"factors", rowsOf(factors)}, {"intervals", rowsOf(intervals)},
+		{"normal_p", number(c.Normality.P)}, {"declined", optional(c.Declined)}, {"factors", rowsOf(factors)}, {"intervals", rowsOf(intervals)},
 	}
 }
 
@@ -154,21 +154,17 @@ func capabilityMembers(c *plan.Capability) []member {
 	for _, r := range c.Rows {
 		must = append(must, mustDoc{r.N, number(r.Ppk)})
 	}
-	ppk, pp := c.Index.Cpk, c.Index.Cp
-	if c.TooFew {
-		ppk, pp = math.NaN(), math.NaN() // declined
-	}
 	return []member{
 		{"lot", optional(c.Lot.Name)}, {"ppk_target", number(c.Target)}, {"ppk_expected", number(c.Expected)}, {"confidence", number(c.Confidence)},
 		{"n", known(c.N)}, {"needed_n", known(c.Needed)}, {"ppk_bound_expected", number(c.Bound)}, {"n_too_small", c.TooFew},
-		{"limit_low_V", number(c.Low)}, {"limit_high_V", number(c.High)}, {"ppk", number(ppk)}, {"pp", number(pp)}, {"ppk_bound", number(c.BoundOf)},
-		{"proven", proven(c)}, {"normal_p", number(c.Normality.P)}, {"must_show", rowsOf(must)},
+		{"limit_low_V", number(c.Low)}, {"limit_high_V", number(c.High)}, {"ppk", number(c.Index.Cpk)}, {"pp", number(c.Index.Cp)}, {"ppk_bound", number(c.BoundOf)},
+		{"proven", proven(c)}, {"declined", optional(c.Declined)}, {"normal_p", number(c.Normality.P)}, {"must_show", rowsOf(must)},
 	}
 }
 
 // proven is null where no lot was judged.
 func proven(c *plan.Capability) any {
-	if c.Lot.Name == "" || c.TooFew {
+	if c.Lot.Name == "" || c.Declined != "" {
 		return nil
 	}
 	return c.Proven
@@ -198,7 +194,7 @@ func acceptMembers(a *plan.Accept) []member {
 		{"sigma_known_V", number(a.KnownSigma)}, {"n", known(a.N)}, {"needed_n", known(a.Needed)}, {"plan_n", a.Plan.N}, {"k", number(a.Plan.K)},
 		{"accepts_good", number(a.AtGood)}, {"accepts_bad", number(a.AtBad)}, {"bad_share_accepted_95", number(a.Often)}, {"bad_share_accepted_10", number(a.Seldom)},
 		{"counting_n", known(a.CountN)}, {"counting_most_bad", most2},
-		{"decision", optional(a.Decision)}, {"undecided", optional(a.Undecided)}, {"lot_n", known(a.Lot.N)}, {"mean_V", lotNumber(a.Lot, a.Lot.Mean)}, {"sd_V", lotNumber(a.Lot, a.Lot.SD)},
+		{"decision", optional(a.Decision)}, {"undecided", optional(a.Undecided)}, {"accepts_bad_lot_n", number(a.BadWithThose)}, {"lot_n", known(a.Lot.N)}, {"mean_V", lotNumber(a.Lot, a.Lot.Mean)}, {"sd_V", lotNumber(a.Lot, a.Lot.SD)},
 		{"limit_low_V", number(a.Low)}, {"limit_high_V", number(a.High)}, {"q_low", number(qLow)}, {"q_high", number(qHigh)},
 		{"bad_share_estimated", number(estimated)}, {"bad_share_most", number(most)}, {"normal_p", number(a.Normality.P)}, {"operating_characteristic", rowsOf(curve)},
 	}

@@ -97,10 +97,8 @@ func about(x float64) string {
 }
 
 func (p *planPrinter) find(f *plan.Find) {
-	bad := share(f.Bad) + " are bad"
-	where := "Where " + bad
+	where := "Where " + share(f.Bad) + " are bad"
 	if f.BadCount > 0 {
-		bad = fmt.Sprintf("%d of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 		where = fmt.Sprintf("With %d bad of %d (%s)", f.BadCount, f.Of, share(f.Bad))
 	}
 	risk := 1 - f.Confidence
@@ -180,10 +178,10 @@ func (p *planPrinter) zeroTable(f *plan.Find) {
 	}
 }
 
-// spread says which standard deviation was planned with.
+// spreadWords says which standard deviation was planned with.
 func spreadWords(sd float64, l plan.Lot) string {
 	if l.Name != "" {
-		return fmt.Sprintf("sd %s from %s of %s", about(sd), count(l.N, "device"), l.Name)
+		return fmt.Sprintf("sd %s of %s from %s of %s", about(sd), l.Of, count(l.N, "device"), l.Name)
 	}
 	return "sd " + given(sd)
 }
@@ -206,9 +204,14 @@ func (p *planPrinter) shift(s *plan.Shift) {
 		p.answer("To see a shift of %s, measure %d of either lot.", given(s.Shift), s.Needed)
 		p.say("With %s it is then seen %s of the time (risk of missing it %s) at %s confidence.", sd, share(1-s.Risk), share(s.Risk), share(s.Confidence))
 	}
+	if s.Lot.N < fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
 	p.reaches("smallest shift seen", s.N, s.Smallest, sd, s.Needed == 0)
 	p.trimming(s.NeededT, s.Needed, s.N, s.PowerT)
-	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	if s.Lot.N >= fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
 }
 
 // reaches is a table of what n devices can do; alone where nothing stands above.
@@ -248,6 +251,10 @@ func (p *planPrinter) trimming(plain, needed, n int, chance float64) {
 	p.say("%s", text)
 }
 
+// fewForSD is the number of devices below which that their standard deviation is known
+// badly is said right behind the answer: of ten the upper bound is 1.5 times the sd.
+const fewForSD = 10
+
 // uncertain says how far the standard deviation of a lot can be trusted.
 func (p *planPrinter) uncertain(l plan.Lot, high float64, neededHigh, needed int) {
 	if !isNumber(high) || needed == 0 {
@@ -256,6 +263,10 @@ func (p *planPrinter) uncertain(l plan.Lot, high float64, neededHigh, needed int
 	n := "more than a million"
 	if neededHigh > 0 {
 		n = itoa(neededHigh)
+	}
+	if l.N < fewForSD {
+		p.say("Caution: from only %s the sd is known badly. It may be up to %s (90 %% confidence); then %s are needed.", count(l.N, "device"), about(high), n)
+		return
 	}
 	p.say("The sd of %s may be up to %s (90 %% confidence); then %s are needed.", count(l.N, "device"), about(high), n)
 }
@@ -268,8 +279,8 @@ func (p *planPrinter) same(s *plan.Same) {
 		truth = "if the true shift is " + given(s.Shift)
 	}
 	switch {
-	case s.Hopeless:
-		p.answer("%d of either lot cannot show it: they would, %s, %s of the time.", s.Few, truth, Chance(s.Chance))
+	case s.Hopeless && s.N > 0:
+		p.answer("%d of either lot cannot show that the shift is within ±%s (%s): %s they would %s of the time.", s.Few, margin, sd, truth, Chance(s.Chance))
 	case s.N > 0:
 		p.answer("%d of either lot show that the shift is within ±%s %s of the time, %s (%s).", s.N, margin, Chance(s.Chance), truth, sd)
 	}
@@ -281,23 +292,16 @@ func (p *planPrinter) same(s *plan.Same) {
 	default:
 		p.answer("To show that two lots are alike within ±%s, measure %d of either lot.", margin, s.Needed)
 		p.say("With %s it is then shown %s of the time (risk of failing %s), %s. The %s interval of the shift has to lie within the margin.", sd, share(1-s.Risk), share(s.Risk), truth, share(s.Level))
+		if s.Hopeless {
+			p.say("As few as %d of either lot would show it only %s of the time.", s.Few, Chance(s.Chance))
+		}
+	}
+	if s.Lot.N < fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
 	}
 	p.reaches("smallest margin shown", s.N, s.Smallest, sd, false)
 	p.trimming(s.NeededT, s.Needed, s.N, s.ChanceT)
-	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
-}
-
-// doubts says where values are not normal.
-func (p *planPrinter) doubts(n plan.Normality, l plan.Lot) {
-	if n.Doubts {
-		p.line("")
-		p.say("Caution: the values of %s are not normal (Anderson-Darling, p %s); what rests on that does not hold for them.", l.Name, pValue(n.P))
+	if s.Lot.N >= fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
 	}
-}
-
-func pValue(x float64) string {
-	if x < 0.0001 {
-		return "below 0.0001"
-	}
-	return fmt.Sprintf("%.2g", x)
 }

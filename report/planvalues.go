@@ -52,17 +52,17 @@ func (p *planPrinter) cover(c *plan.Cover) {
 		p.line("")
 		p.free(c)
 	}
-	p.doubts(c.Normality, c.Lot)
 }
 
 func (p *planPrinter) coverLot(c *plan.Cover, what string) {
-	p.answer("Limits that hold %s, from %s of %s:", what, count(c.Lot.N, "device"), c.Lot.Name)
+	if len(c.Intervals) == 0 {
+		p.answer("%s: no limits that hold %s, %s.", c.Lot.Name, what, c.Declined)
+		return
+	}
+	p.answer("Limits of %s that hold %s, from %s of %s:", c.Lot.Of, what, count(c.Lot.N, "device"), c.Lot.Name)
 	rule, low, high := column{head: "by"}, column{head: "low"}, column{head: "high"}
 	for _, iv := range c.Intervals {
 		name := "mean ± " + factor(iv.K) + " sd"
-		if iv.Free && !isNumber(iv.Low) {
-			continue
-		}
 		if iv.Free {
 			name = "least and greatest"
 			if c.BlocksBoth > 2 {
@@ -75,6 +75,10 @@ func (p *planPrinter) coverLot(c *plan.Cover, what string) {
 	}
 	p.table(rule, low, high)
 	p.line("")
+	if c.Declined != "" {
+		p.say("None by mean ± k sd: %s.", c.Declined)
+		return
+	}
 	p.say("mean ± k sd is for normal values.")
 }
 
@@ -168,13 +172,8 @@ func indexGiven(x float64) string { return fmt.Sprintf("%.4g", x) }
 
 func (p *planPrinter) capabilityLot(c *plan.Capability, conf string) {
 	switch {
-	case c.TooFew:
-		p.answer("No capability is stated: %s has %s with a value, and fewer than %d say too little.", c.Lot.Name, count(c.Lot.N, "device"), plan.FewestCapable)
-		if isNumber(c.BoundOf) {
-			p.say("What they prove at %s confidence is a Ppk of %s.", conf, index(c.BoundOf))
-		}
-	case !isNumber(c.Index.Cpk):
-		p.answer("%s: no capability, its values have no spread.", c.Lot.Name)
+	case c.Declined != "":
+		p.answer("%s: no capability is stated, %s.", c.Lot.Name, c.Declined)
 	default:
 		word := "not proven"
 		if c.Proven {
@@ -186,7 +185,6 @@ func (p *planPrinter) capabilityLot(c *plan.Capability, conf string) {
 		}
 	}
 	p.say("V_GS(th) against %s.", limitWords(c.Low, c.High))
-	p.doubts(c.Normality, c.Lot)
 }
 
 func limitWords(low, high float64) string {
@@ -248,6 +246,9 @@ func (p *planPrinter) decision(a *plan.Accept, k string) {
 	j := a.Judgement
 	if a.Decision == plan.Undecided {
 		p.answer("%s: not decided, %s.", a.Lot.Name, a.Undecided)
+		if isNumber(a.BadWithThose) {
+			p.say("--n %d decides with those; a lot with %s bad is then accepted %s of the time.", a.Lot.N, share(a.Bad), Chance(a.BadWithThose))
+		}
 	} else {
 		p.answer("%s: %s (%s, V_GS(th) against %s).", a.Lot.Name, string(a.Decision), count(a.Lot.N, "device"), limitWords(a.Low, a.High))
 	}
@@ -265,5 +266,4 @@ func (p *planPrinter) decision(a *plan.Accept, k string) {
 	if a.SigmaDoubt {
 		p.say("Caution: it spreads more (sd %s) than the known sigma of %s lets expect.", about(a.Lot.SD), FormatGiven(a.KnownSigma, "V"))
 	}
-	p.doubts(a.Normality, a.Lot)
 }

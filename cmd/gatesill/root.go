@@ -9,6 +9,7 @@ import (
 	"os/user"
 	"runtime/debug"
 	"slices"
+	"strconv"
 	"strings"
 	"sync"
 	"unicode/utf8"
@@ -214,7 +215,14 @@ func between(lo, hi int) cobra.PositionalArgs {
 		if len(args) >= lo && (hi < 0 || len(args) <= hi) {
 			return nil
 		}
-		return job.Usage("usage: "+cmd.UseLine(), "%s: %d arguments", cmd.CommandPath(), len(args))
+		want := fmt.Sprintf("%d to %d", lo, hi)
+		switch {
+		case hi < 0:
+			want = fmt.Sprintf("at least %d", lo)
+		case lo == hi:
+			want = strconv.Itoa(lo)
+		}
+		return job.Usage("usage: "+cmd.UseLine(), "%s: %d given behind it, needs %s", cmd.CommandPath(), len(args), want)
 	}
 }
 

@@ -28,7 +28,8 @@ type sharing struct {
 //
 // The session part is what the uncertainty between sessions holds beside that
 // within one, the gain part what the absolute one holds beside that; for each the
-// median over the devices is taken.
+// median over the devices is taken. What a gain that both lots share does to the
+// shift itself (0.3 % of it) is left out.
 func sharingOf(l *Lot, of []*Member, by fit.Key, scale func(v float64) float64) sharing {
 	s := sharing{session: map[string]float64{}, meters: map[string]float64{}}
 	own := "\x00" + l.Name
@@ -77,22 +78,30 @@ func medianOfMost(x []float64, of int) float64 {
 }
 
 // variance is what an error drawn once for each key adds to candidate minus
-// reference, 0 where both lots have the same weights and follow the error alike.
-// unknown: it adds something, but how much is not known.
+// reference, 0 where both lots have the same weights. unknown: it adds something, but
+// how much is not known.
 //
-//	Σ (w_candidate,k u_candidate - w_reference,k u_reference)²
+//	Σ (w_candidate,k - w_reference,k)² u_k²
+//
+// u_k² is that of the lot that alone has the key, and the mean of both where both do.
 func variance(ref, cand map[string]float64, uRef, uCand float64) (v float64, unknown bool) {
-	same := sameWeights(ref, cand)
+	if sameWeights(ref, cand) {
+		return 0, false
+	}
 	if math.IsNaN(uRef) || math.IsNaN(uCand) {
-		return 0, !same
+		return 0, true
 	}
 	for k, w := range cand {
-		d := w*uCand - ref[k]*uRef
-		v += d * d
+		u2 := uCand * uCand
+		if _, both := ref[k]; both {
+			u2 = (u2 + uRef*uRef) / 2
+		}
+		d := w - ref[k]
+		v += d * d * u2
 	}
 	for k, w := range ref {
 		if _, both := cand[k]; !both {
-			v += w * uRef * w * uRef
+			v += w * w * uRef * uRef
 		}
 	}
 	return v, false
@@ -113,13 +122,14 @@ type shared struct {
 	u               float64 // standard uncertainty; NaN: nothing of it is known
 	session, meters bool    // the lots differ in sessions, in meters
 	missing         bool    // a part that enters is not known
+	tempHeld        bool    // u holds what the temperatures are uncertain by, or one session has one
 }
 
 func sharedOf(ref, cand sharing) shared {
 	s := shared{session: !sameWeights(ref.session, cand.session), meters: !sameWeights(ref.meters, cand.meters)}
 	a, noSession := variance(ref.session, cand.session, ref.tau, cand.tau)
 	b, noMeters := variance(ref.meters, cand.meters, ref.gamma, cand.gamma)
-	s.missing = noSession || noMeters
+	s.missing, s.tempHeld = noSession || noMeters, !noSession
 	s.u = math.Sqrt(a + b)
 	if s.missing && s.u == 0 {
 		s.u = math.NaN()
@@ -152,6 +162,7 @@ func one(float64) float64 { return 1 }
 func (c *comparing) commonOf(ref, cand []*Member) (Common, float64) {
 	s := sharedOf(sharingOf(c.ref.lot, ref, c.opt.By, one), sharingOf(c.cand.lot, cand, c.opt.By, one))
 	out := Common{U: s.u, Basis: s.basis(), OffsetU: math.NaN()}
+	c.tempHeld = s.tempHeld
 	nu := math.Inf(1)
 	if !s.session && !s.meters {
 		return out, nu

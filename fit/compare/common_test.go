@@ -103,6 +103,15 @@ func TestCommonNotKnown(t *testing.T) {
 	check(s, o, nan, nan, nan, true)
 	check(s, o, 0.003, nan, 0.003*math.Sqrt2, true) // what is known is in it
 	check(s, Sitting{"t", "m"}, 0.003, nan, 0.003*math.Sqrt2, false)
+
+	// In one session what it does to both lots is nothing to their difference, also
+	// where more is known of one of them.
+	a, b := commonLots(s, s)
+	sit(&a, s, 0.001, 0.002)
+	near(t, "unlike statements, one session", compareLots(t, a, b, plain()).Common.U, 0, 0)
+	// Another bench, each with its own.
+	sit(&b, o, 0.003, 0.004)
+	near(t, "two benches", compareLots(t, a, b, plain()).Common.U, math.Sqrt(1+4+9+16)*1e-3, 1e-9)
 }
 
 // withControls adds control parts, the reference's at v, the candidate's off higher.
@@ -180,7 +189,7 @@ func TestTemperature(t *testing.T) {
 	near(t, "taken off", c.ForTemp, -0.0168, 1e-12)
 	near(t, "shift", c.Shift, c.Raw+0.0168, 1e-12)
 	near(t, "middle", (c.Low+c.High)/2, c.Shift, 1e-12)
-	if !strings.Contains(c.Sentence, "-17 mV were taken off for the temperature (25.2 °C against 21.0 °C at -4.0 mV/K), before that the shift was +20 mV") {
+	if !strings.Contains(c.Sentence, "-17 mV were taken off for the temperature (25.2 °C against 21.0 °C at -4.0 mV/K; uncertain by 3.4 mV: 20 % of the slope, typical), before that the shift was +20 mV") {
 		t.Error(c.Sentence)
 	}
 	b.Temp = nan

@@ -59,7 +59,10 @@ func Lots(reference, candidate Lot, opt Options) (Comparison, error) {
 	c.beside()
 	c.out.Curves = c.curves()
 	c.out.Gain = c.gain()
-	c.out.Options = c.goingOn()
+	c.out.Beside = c.besideWords()
+	if c.pairs == nil { // of the same devices nothing is to be taken, sorted or sent back
+		c.out.Options = c.goingOn()
+	}
 	return c.out, nil
 }
 
@@ -71,6 +74,7 @@ type comparing struct {
 	pairs     *pairs  // nil: not by serial
 	shift     estimate
 	tied      ties
+	tempHeld  bool   // the common error holds what temperatures are uncertain by, or the lots share it
 	whyNot    string // there is no shift to be had: one sentence
 	out       Comparison
 }
@@ -139,7 +143,9 @@ func (c *comparing) primary() {
 	if p := c.pairs; p != nil {
 		c.out.Test = "20 % trimmed mean of the differences by serial, after Tukey and McLaughlin"
 		c.shift = within(trimmedMean(p.d, 0))
-		c.out.Common, nu = c.commonOf(p.ref, p.cand)
+		if c.out.Common = (Common{U: math.NaN(), OffsetU: math.NaN()}); len(p.d) > 0 {
+			c.out.Common, nu = c.commonOf(p.ref, p.cand)
+		}
 	} else {
 		c.out.Test = "Yuen's test on 20 % trimmed means"
 		c.shift = between(refMean, candMean)
@@ -155,12 +161,25 @@ func (c *comparing) primary() {
 	}
 	c.shift.with(c.out.Common.U, nu)
 	c.takeOff()
+	c.warnOfSizes()
 	c.out.Shift = c.shift.shift
 	c.out.DF, c.out.P = c.shift.df(), c.shift.p()
 	c.out.Low, c.out.High = c.shift.interval(c.opt.Level)
 	c.out.NotExcluded = math.Max(math.Abs(c.out.Low), math.Abs(c.out.High))
 	if !math.IsNaN(c.opt.Margin) {
 		c.out.MarginLow, c.out.MarginHigh = c.shift.interval(marginLevel)
+	}
+}
+
+// few is up to how many devices a lot is small against one at least twice as large.
+const few = 6
+
+// warnOfSizes says that the interval of a small lot and a large one is a little too
+// narrow, see between.
+func (c *comparing) warnOfSizes() {
+	a, b := len(c.ref.x), len(c.cand.x)
+	if small := min(a, b); c.pairs == nil && small <= few && max(a, b) >= 2*small {
+		c.warn(fit.CodeNTooSmall, fmt.Sprintf("%d devices against %d: with so few against so many an interval of 95 %% holds the true shift in 92 to 94 of 100 cases; a few more of the smaller lot mend that", small, max(a, b)))
 	}
 }
 
@@ -177,11 +196,13 @@ func (c *comparing) takeOff() {
 		return
 	}
 	warmer := c.cand.lot.Temp - c.ref.lot.Temp
-	if math.IsNaN(warmer) {
+	if math.IsNaN(warmer) || math.IsInf(warmer, 0) {
 		c.warn(fit.CodeUnlikeConditions, "the temperature of one of the lots is not known: nothing was taken off the shift for it")
 		return
 	}
 	c.out.ForTemp = c.opt.Tempco * warmer
+	c.out.TempU = c.opt.tempU(warmer, !c.tempHeld)
+	c.shift.with(c.out.TempU, math.Inf(1))
 	c.shift.shift -= c.out.ForTemp
 	c.out.Raw = raw
 }

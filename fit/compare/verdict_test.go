@@ -1,6 +1,7 @@
 package compare
 
 import (
+	"fmt"
 	"math"
 	"strings"
 	"testing"
@@ -213,4 +214,20 @@ func TestSymmetries(t *testing.T) {
 			t.Errorf("%v to %v, shift %v, p %v", c.Low, c.High, c.Shift, c.P)
 		}
 	})
+}
+
+// A small lot against a large one: the interval is a little too narrow, which is
+// said.
+func TestUnlikeSizes(t *testing.T) {
+	check := func(n, m int, want bool) {
+		t.Helper()
+		c := verdict(t, lotOf("A", spreadOut(n, 3, 0.02)...), lotOf("B", spreadOut(m, 3, 0.02)...), nan, NoDifference)
+		if said := strings.Contains(fmt.Sprint(c.Warnings), "devices against"); said != want {
+			t.Errorf("%d against %d: warned %t", n, m, !want)
+		}
+	}
+	check(6, 12, true)
+	check(12, 6, true)
+	check(6, 11, false)
+	check(7, 40, false)
 }

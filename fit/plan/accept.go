@@ -36,20 +36,21 @@ type OCPoint struct{ Bad, Accepts float64 }
 // Accept is the answer to an [AcceptRequest].
 type Accept struct {
 	AcceptRequest
-	Needed     int                 // parts that the two points ask for; without them N
-	Plan       stats.VariablesPlan // for the sample at hand where that is larger than Needed
-	AtGood     float64             // chance of accepting at Good; NaN
-	AtBad      float64             // chance of accepting at Bad; NaN
-	Often      float64             // share of bad parts with which 95 of 100 lots are accepted
-	Seldom     float64             // share of bad parts with which 10 of 100 lots are
-	Curve      []OCPoint           // operating characteristic, by rising share from 0
-	CountN     int                 // parts of a plan that counts bad ones instead, with the same two points; 0: none, or not asked
-	CountMost  int                 // and how many may be bad
-	Decision   Decision
-	Judgement  stats.Judgement
-	Undecided  string // why there is no decision, ""
-	Normality  Normality
-	SigmaDoubt bool // the sample spreads more than the sigma that is known lets expect (chance below 1 %)
+	Needed       int                 // parts that the two points ask for; without them N
+	Plan         stats.VariablesPlan // for the sample at hand where that is larger than Needed
+	AtGood       float64             // chance of accepting at Good; NaN
+	AtBad        float64             // chance of accepting at Bad; NaN
+	Often        float64             // share of bad parts with which 95 of 100 lots are accepted
+	Seldom       float64             // share of bad parts with which 10 of 100 lots are
+	Curve        []OCPoint           // operating characteristic, by rising share from 0
+	CountN       int                 // parts of a plan that counts bad ones instead, with the same two points; 0: none, or not asked
+	CountMost    int                 // and how many may be bad
+	Decision     Decision
+	Judgement    stats.Judgement
+	Undecided    string  // why there is no decision, ""
+	BadWithThose float64 // where the sample is too small: chance of accepting at Bad with a plan of its size; NaN
+	Normality    Normality
+	SigmaDoubt   bool // the sample spreads more than the sigma that is known lets expect (chance below 1 %)
 }
 
 // ToAccept answers an [AcceptRequest]. A sample of fewer parts than the plan wants
@@ -58,7 +59,7 @@ type Accept struct {
 // not judged. Errors: [Invalid]. Checked: TestAccept.
 func ToAccept(r AcceptRequest) (*Accept, error) {
 	known := !math.IsNaN(r.KnownSigma)
-	a := &Accept{AcceptRequest: r, AtGood: math.NaN(), AtBad: math.NaN(), Normality: Normality{P: math.NaN()}}
+	a := &Accept{AcceptRequest: r, AtGood: math.NaN(), AtBad: math.NaN(), BadWithThose: math.NaN(), Normality: Normality{P: math.NaN()}}
 	if err := a.check(known); err != nil {
 		return nil, err
 	}
@@ -169,18 +170,22 @@ func (a *Accept) judge(known bool) {
 		return
 	case l.N < plan.N:
 		a.Undecided = fmt.Sprintf("the plan wants %d parts, and %d have a value", plan.N, l.N)
+		if l.N >= 3 && math.IsNaN(a.K) && !math.IsNaN(a.Bad) {
+			a.BadWithThose = stats.VariablesPlanWith(l.N, a.Good, a.GoodRisk, known).Accepts(a.Bad)
+		}
 	}
 	if known && l.N > 1 {
 		df := float64(l.N - 1)
 		a.SigmaDoubt = stats.ChiSquareUpper(df*l.SD*l.SD/(sd*sd), df) < 0.01
 	}
 	a.Judgement = plan.Judge(l.Mean, sd, l.N, a.Low, a.High)
+	if why := l.unfit(a.Normality); why != "" && a.Undecided == "" {
+		a.Undecided = why
+	}
 	switch {
 	case a.Undecided != "":
 	case !a.Judgement.Computable:
 		a.Undecided = "its values have no spread to judge by, or are too few"
-	case a.Normality.Doubts:
-		a.Undecided = "the rule is for normal values, and these are not"
 	case a.Judgement.Accept:
 		a.Decision = Accepted
 	default:

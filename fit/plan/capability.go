@@ -26,14 +26,15 @@ type CapabilityRequest struct {
 // limit; with two they hold for the nearer one, which as a rule decides.
 type Capability struct {
 	CapabilityRequest
-	Needed    int        // parts with which Expected proves Target; 0: not asked, or too many
-	TooMany   bool       // more than are planned with would be needed
-	Bound     float64    // what Expected, found with N parts, proves; NaN
-	Rows      []MustShow // what has to be found to prove Target, over numbers of parts or of N alone
-	TooFew    bool       // N, or the lot at hand, is below [FewestCapable]
-	Index     stats.Capability
-	BoundOf   float64 // lower bound of the lot at hand; NaN
-	Proven    bool    // BoundOf reaches Target
+	Needed    int              // parts with which Expected proves Target; 0: not asked, or too many
+	TooMany   bool             // more than are planned with would be needed
+	Bound     float64          // what Expected, found with N parts, proves; NaN
+	Rows      []MustShow       // what has to be found to prove Target, over numbers of parts or of N alone
+	TooFew    bool             // N, or the lot at hand, is below [FewestCapable]
+	Index     stats.Capability // of the lot at hand; NaN where declined
+	Declined  string           // why the lot has none; ""
+	BoundOf   float64          // lower bound of the lot at hand; NaN
+	Proven    bool             // BoundOf reaches Target
 	Normality Normality
 }
 
@@ -82,9 +83,20 @@ func ToBeCapable(r CapabilityRequest) (*Capability, error) {
 	if r.Lot.given() {
 		c.TooFew = r.Lot.N < FewestCapable
 		c.Index = stats.CapabilityOf(r.Lot.Mean, r.Lot.SD, r.Lot.N, r.Low, r.High)
-		c.BoundOf = stats.CpkBoundOneLimit(c.Index.Cpk, r.Lot.N, r.Confidence)
-		c.Proven = !c.TooFew && c.BoundOf >= r.Target
 		c.Normality = normalityOf(r.Lot.Values)
+		switch c.Declined = r.Lot.unfit(c.Normality); {
+		case c.Declined != "":
+		case c.TooFew:
+			c.Declined = fmt.Sprintf("%d devices have a value, and fewer than %d say too little", r.Lot.N, FewestCapable)
+		case math.IsNaN(c.Index.Cpk):
+			c.Declined = "its values do not differ"
+		default:
+			c.BoundOf = stats.CpkBoundOneLimit(c.Index.Cpk, r.Lot.N, r.Confidence)
+			c.Proven = c.BoundOf >= r.Target
+		}
+		if c.Declined != "" {
+			c.Index = stats.CapabilityOf(math.NaN(), math.NaN(), r.Lot.N, math.NaN(), math.NaN())
+		}
 	}
 	return c, nil
 }

@@ -23,7 +23,8 @@ type Cover struct {
 	BlocksBoth        int        // how many values may be left out at both ends together, and one more; below 2: none
 	ShareOne          float64    // share that the least (or greatest) of N bounds; NaN
 	ShareBoth         float64    // share between least and greatest of N; NaN
-	Intervals         []Interval // of the lot at hand
+	Intervals         []Interval // of the lot at hand; without those that cannot be had
+	Declined          string     // why it has none for normal values; ""
 	Normality         Normality  // of the lot at hand
 }
 
@@ -80,11 +81,11 @@ func ToCover(r CoverRequest) (*Cover, error) {
 	}
 	if x := r.Lot.Values; len(x) >= 2 {
 		c.Normality = normalityOf(x)
-		for _, iv := range []Interval{
-			{stats.NormalTolerance(x, stats.Both, r.Share, r.Confidence), false},
-			{stats.FreeTolerance(x, stats.Both, r.Share, r.Confidence), true},
-		} {
-			c.Intervals = append(c.Intervals, iv)
+		if c.Declined = r.Lot.unfit(c.Normality); c.Declined == "" {
+			c.Intervals = append(c.Intervals, Interval{stats.NormalTolerance(x, stats.Both, r.Share, r.Confidence), false})
+		}
+		if iv := stats.FreeTolerance(x, stats.Both, r.Share, r.Confidence); !math.IsNaN(iv.Low) {
+			c.Intervals = append(c.Intervals, Interval{iv, true})
 		}
 	}
 	return c, nil

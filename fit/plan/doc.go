@@ -58,10 +58,24 @@ func (e *Invalid) Error() string { return e.Input + ": " + e.Why }
 // Lot is a sample that is at hand already; the zero Lot is none.
 type Lot struct {
 	Name   string
+	Of     string  // what was measured: "V_GS(th)"
 	N      int     // devices with a value
 	Mean   float64 // V
 	SD     float64 // V, between devices
 	Values []float64
+	Mixed  bool // it looks like two populations
+}
+
+// unfit says why nothing that rests on one normal distribution holds for the lot;
+// "" where it may.
+func (l *Lot) unfit(n Normality) string {
+	switch {
+	case l.Mixed:
+		return "the lot is two populations"
+	case n.Doubts:
+		return fmt.Sprintf("the lot is far from normal (Anderson-Darling p = %.2g)", n.P)
+	}
+	return ""
 }
 
 // LotOf is a sample of values, V, with their mean and standard deviation.

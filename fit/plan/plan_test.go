@@ -168,6 +168,12 @@ func TestCover(t *testing.T) {
 	if l.Intervals[1].Low != x[0] || l.Intervals[1].High != x[99] {
 		t.Errorf("between values: %+v", l.Intervals[1])
 	}
+	two := LotOf("two", x)
+	two.Mixed = true
+	l, err = ToCover(CoverRequest{Share: 0.95, Confidence: 0.95, Lot: two, N: 100})
+	if err != nil || len(l.Intervals) != 1 || !l.Intervals[0].Free || l.Declined == "" {
+		t.Errorf("of two populations: %+v, %v", l, err)
+	}
 	refused(t, "cover", map[string]CoverRequest{"share": {Share: 1, Confidence: 0.9}, "n": {Share: 0.9, Confidence: 0.9, N: 1}, "confidence": {Share: 0.9}},
 		func(r CoverRequest) error { _, err := ToCover(r); return err })
 }
@@ -195,8 +201,14 @@ func TestCapability(t *testing.T) {
 		t.Errorf("of a lot: %+v, %v", l, err)
 	}
 	l, _ = ToBeCapable(CapabilityRequest{Target: 1.33, Expected: none, Confidence: 0.95, N: 24, Lot: LotOf("a", x[:24]), Low: 2, High: 4})
-	if !l.TooFew || l.Proven {
+	if !l.TooFew || l.Proven || l.Declined == "" || !math.IsNaN(l.Index.Cpk) {
 		t.Errorf("of 24: %+v", l)
+	}
+	two := LotOf("two", x)
+	two.Mixed = true
+	l, _ = ToBeCapable(CapabilityRequest{Target: 1.33, Expected: none, Confidence: 0.95, N: 60, Lot: two, Low: 2, High: 4})
+	if l.Declined == "" || !math.IsNaN(l.BoundOf) || l.Proven {
+		t.Errorf("of two populations: %+v", l)
 	}
 	refused(t, "capability", map[string]CapabilityRequest{
 		"ppk": {Target: 0, Expected: none, Confidence: 0.95, Low: none, High: none}, "expect": {Target: 1.33, Expected: 1.33, Confidence: 0.95, Low: none, High: none},

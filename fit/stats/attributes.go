@@ -10,8 +10,7 @@ func FindsBad(n, bad, size int) float64 { return HypergeometricUpper(1, n, bad, 
 // ZeroFailureSize is how many parts, all good, show with the confidence given
 // that less than the share bad is bad in a process or a very large lot: the least
 // n with (1-bad)^n <= 1-confidence. 0 for numbers not between 0 and 1 and for more
-// than 1e9. Checked:
-// TestZeroFailures.
+// than 1e9. Checked: TestZeroFailures.
 func ZeroFailureSize(bad, confidence float64) int {
 	if !inside(bad) || !inside(confidence) {
 		return 0

@@ -47,20 +47,16 @@ func BinomialLower(k, n int, p float64) float64 {
 // BinomialUpper is the probability of at least k of n when each is a hit with
 // probability p, good to small ones. See [BinomialAt].
 func BinomialUpper(k, n int, p float64) float64 {
-	if k > n && n >= 0 && p >= 0 && p <= 1 {
-		return 0
-	}
-	if float64(k) <= float64(n)*p {
-		return 1 - BinomialLower(k-1, n, p)
-	}
-	// Hits are the misses of the mirrored count; 1-p would lose the digits of a
-	// small p, so the sum is made here.
 	switch {
 	case n < 0 || !(p >= 0 && p <= 1):
 		return math.NaN()
-	case p == 0:
+	case k > n || p == 0 && k > 0:
 		return 0
+	case float64(k) <= float64(n)*p:
+		return 1 - BinomialLower(k-1, n, p)
 	}
+	// The misses of the mirrored count, summed here: handing 1-p on would lose the
+	// digits of a small p.
 	odds := p / (1 - p)
 	return tailSum(BinomialAt(k, n, p), n-k, func(i int) float64 {
 		return float64(i) / float64(n-i+1) * odds

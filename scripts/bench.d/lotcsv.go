@@ -3,7 +3,7 @@
 // Lotcsv writes a big long-layout CSV to standard output: device, gate voltage,
 // drain current. The devices are invented: a square law with a threshold of its
 // own each, read by 4.5-digit meters (20,000 counts) with a little noise. The
-// seed is fixed, so the same arguments give the same bytes.
+// same arguments give the same bytes.
 //
 //	go run scripts/bench.d/lotcsv.go -devices 2000 -rows 500 > lot.csv
 package main
@@ -28,16 +28,17 @@ func main() {
 	devices := flag.Int("devices", 2000, "number of devices")
 	rows := flag.Int("rows", 500, "rows of each device")
 	step := flag.Float64("step", 0.004, "gate step in V")
+	seed := flag.Int64("seed", 20240501, "seed of what is drawn")
 	flag.Parse()
-	if err := write(*devices, *rows, *step); err != nil {
+	if err := write(*devices, *rows, *step, *seed); err != nil {
 		fmt.Fprintln(os.Stderr, "lotcsv:", err)
 		os.Exit(1)
 	}
 }
 
-func write(devices, rows int, step float64) error {
+func write(devices, rows int, step float64, seed int64) error {
 	w := bufio.NewWriterSize(os.Stdout, 1<<20)
-	rnd := rand.New(rand.NewSource(20240501))
+	rnd := rand.New(rand.NewSource(seed))
 	w.WriteString("device,vg_V,id_A\n")
 	line := make([]byte, 0, 64)
 	for d := 1; d <= devices; d++ {

@@ -26,7 +26,7 @@ type PlanRequest struct {
 	Margin                                     record.Amount // V, or % or A of the idle current
 	From                                       string        // lot of the store; "": none
 	Output                                     string        // file to draw in; "": none
-	Fail                                       bool          // accept: [ExitNo] unless the lot is accepted
+	Fail                                       bool          // accept: [ExitNo] when the lot is not accepted; undecided is no such answer
 }
 
 // Plan answers how many parts to measure for a purpose: find, shift, same, cover,
@@ -45,7 +45,10 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 		return Usage("--n 20", "--n: 0 parts show nothing")
 	}
 	for _, v := range []float64{rq.Shift.Float(), rq.SD.Float(), rq.SigmaKnown.Float(), voltsOf(rq.Margin)} {
-		if v >= 5 {
+		if v > record.GreatestShift {
+			return Usage("50 mV is written 50mV: M is mega, m is milli", "%s of gate voltage is more than any", report.FormatGiven(v, "V"))
+		}
+		if v >= bareVolts {
 			env.warn("%s of gate voltage: a bare number is in volts, 50 mV is written 50mV", report.FormatGiven(v, "V"))
 		}
 	}
@@ -80,8 +83,13 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 	} else {
 		err = report.PlanTable(env.Out, a, env.style())
 	}
-	if acc, ok := a.(*plan.Accept); ok && err == nil && rq.Fail && acc.Decision != plan.Accepted {
-		return &Failure{Code: ExitNo}
+	if acc, ok := a.(*plan.Accept); ok && err == nil && rq.Fail {
+		switch acc.Decision {
+		case plan.NotAccepted:
+			return &Failure{Code: ExitNo}
+		case plan.Undecided:
+			env.warn("--fail: nothing was decided about lot %s, and that is no refusal: exit code 0", report.Clean(rq.From))
+		}
 	}
 	return err
 }
@@ -240,7 +248,9 @@ func sampleOf(s *report.Sheet, key fit.Key) plan.Lot {
 			values = append(values, q.Value)
 		}
 	}
-	return plan.LotOf(s.Lot.Name, values)
+	l := plan.LotOf(s.Lot.Name, values)
+	l.Of, l.Mixed = report.KeyOf(key).Symbol, s.Spread.Populations > 1
+	return l
 }
 
 func hasSpread(l plan.Lot) error {
@@ -306,13 +316,13 @@ func (e *Env) marginVolts(m record.Amount, s *report.Sheet) (float64, error) {
 
 // tellPlanning warns of what in a lot does not fit what is planned with.
 func (e *Env) tellPlanning(kind string, s *report.Sheet) {
-	if kind == "find" {
+	switch kind {
+	case "find":
 		return
-	}
-	if s.Spread.Populations > 1 {
-		e.warn("lot %s looks like two populations: what rests on one normal distribution does not hold for it [%s]", report.Clean(s.Lot.Name), fit.CodeTwoPopulations)
-	}
-	if kind != "accept" && kind != "capability" && kind != "cover" {
+	case "shift", "same":
+		if s.Spread.Populations > 1 {
+			e.warn("lot %s looks like two populations: its standard deviation is not that of one [%s]", report.Clean(s.Lot.Name), fit.CodeTwoPopulations)
+		}
 		return
 	}
 	dead := 0

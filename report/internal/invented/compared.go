@@ -74,7 +74,7 @@ func Compared(reference, candidate report.Sheet, o Against) report.Compared {
 	c.Sentence = fmt.Sprintf("%s: the gate bias of lot %s lies %.1f mV from that of lot %s.", c.Verdict, c.Candidate, 1e3*c.Shift, c.Reference)
 	c.MoreText = "the number takes the spread of these two lots for that of the next"
 	c.Spread, c.SpreadTest = compare.Interval{Value: c.SD[1] / c.SD[0], Low: 0.8 * c.SD[1] / c.SD[0], High: 1.25 * c.SD[1] / c.SD[0]}, "invented test on spreads"
-	c.Secondary = []compare.Secondary{{Test: "invented test on ranks", Statistic: 412, P: c.P * 1.1, PAdjusted: math.Min(1, c.P*2.2)}, {Test: "invented test on whole distributions", Statistic: 0.31, P: nan, PAdjusted: nan}}
+	c.Secondary = []compare.Secondary{{Test: "invented test on ranks", Shift: compare.Interval{Value: 0.0121, Low: 0.0031, High: 0.0212}, Statistic: 412, P: c.P * 1.1, PAdjusted: math.Min(1, c.P*2.2)}, {Test: "invented test on whole distributions", Shift: compare.Interval{Value: math.NaN(), Low: math.NaN(), High: math.NaN()}, Statistic: 0.31, P: nan, PAdjusted: nan}}
 	c.Common = compare.Common{U: 0.0013, Basis: "sessions of one bench", OffsetU: nan}
 	c.Curves = band(reference, candidate)
 	c.Gain = &compare.Gain{Key: fit.KeyBeta, Percent: compare.Interval{Value: 1.2, Low: -0.4, High: 2.8}, P: 0.14, N: [2]int{c.Counts[0].WithValue, c.Counts[1].WithValue}, Adjusted: true, Text: "at equal threshold no difference of the gain factor is seen: +1.2 %, 95 % interval -0.4 to +2.8 %"}
