@@ -51,10 +51,7 @@ func (n *Network) choices(s Series, v float64, units []*Unit) []Choice {
 		if slices.ContainsFunc(out, func(c Choice) bool { return c.Network == m }) {
 			return
 		}
-		c := Choice{Series: s, Change: what, Network: m, Gate: m.At(0.5)}
-		c.Off = c.Gate - v
-		c.Idle = spreadAt(units, c.Gate)
-		out = append(out, c)
+		out = append(out, choiceOf(s, what, m, v, units))
 	}
 	if m, ok := n.nearestTop(s, v); ok {
 		add(ChangeTop, m)
@@ -66,6 +63,12 @@ func (n *Network) choices(s Series, v float64, units []*Unit) []Choice {
 		add(ChangeBoth, m)
 	}
 	return out
+}
+
+// choiceOf is network m, chosen for gate voltage v.
+func choiceOf(s Series, what string, m Network, v float64, units []*Unit) Choice {
+	gate := m.At(0.5)
+	return Choice{Series: s, Change: what, Network: m, Gate: gate, Off: gate - v, Idle: spreadAt(units, gate)}
 }
 
 // idealTop gives the top resistor with which the network gives v, the trimmer in its
@@ -116,6 +119,10 @@ func (n *Network) nearest(values []float64, v float64, set func(m *Network, r fl
 	return best, len(values) > 0
 }
 
+// mostChange is by what factor the sum of both resistors may grow, so that the current
+// through the divider stays about what it was (judgement).
+const mostChange = 1.2
+
 // nearestBoth changes both resistors; of the pairs within 0.1 mV of the nearest, that
 // with the least change of their sum.
 func (n *Network) nearestBoth(s Series, v float64) (Network, bool) {
@@ -129,12 +136,12 @@ func (n *Network) nearestBoth(s Series, v float64) (Network, bool) {
 	}
 	var pairs []pair
 	least := math.Inf(1)
-	for _, b := range s.Around(v/n.Supply*sum, len(s.Decade())/2) {
+	for _, b := range s.Around(mostChange*sum, 2*len(s.Decade())) {
 		m := *n
 		m.Bottom = b
 		m, ok := m.nearestTop(s, v)
 		q := pair{m, math.Abs(m.At(0.5) - v), math.Abs(m.Top+m.Bottom-sum) / sum}
-		if !ok || q.change > 0.2 {
+		if !ok || q.change > mostChange-1 {
 			continue
 		}
 		pairs, least = append(pairs, q), math.Min(least, q.off)
@@ -243,10 +250,14 @@ func (p *Plan) ForBins(bins []lot.Bin) {
 				units = append(units, u)
 			}
 		}
-		list := n.choices(finest, (b.Low+b.High)/2, units)
-		if len(list) == 0 {
-			continue
+		middle, change := (b.Low+b.High)/2, ChangeTop
+		m, ok := n.nearestTop(finest, middle)
+		if !(n.Bottom > 0) {
+			change = ChangeBottom
+			m, ok = n.nearestBottom(finest, middle)
 		}
-		p.Bins = append(p.Bins, BinChoice{b.Name, b.Low, b.High, names, list[0]})
+		if ok {
+			p.Bins = append(p.Bins, BinChoice{b.Name, b.Low, b.High, names, choiceOf(finest, change, m, middle, units)})
+		}
 	}
 }

@@ -113,7 +113,7 @@ func TestChoicesAreNearest(t *testing.T) {
 				}
 				continue
 			}
-			for _, d := range s.Decade() {
+			for _, d := range decades[s] {
 				for exp := 0.0; exp <= 5; exp++ {
 					m := n
 					if r := of(d, exp); c.Change == ChangeTop {
