@@ -200,6 +200,7 @@ func biasTrimDocOf(t *bias.Trim) *biasTrimDoc {
 type biasOnDoc struct {
 	Device string `json:"device"`
 	I      number `json:"idle_A"`
+	Below  number `json:"less_than_A"`
 	Power  number `json:"power_W"`
 	Temp   number `json:"temperature_C"`
 }
@@ -241,7 +242,11 @@ func biasLineDocOf(b *Bias, l *bias.Line) *biasLineDoc {
 			}
 		}
 		for k, q := range s.Devices {
-			d.Devices = append(d.Devices, biasOnDoc{l.Names[k], number(q.I), number(q.Power), number(q.Temp)})
+			on := biasOnDoc{l.Names[k], number(q.Told.I), notHad, number(q.Power), number(q.Temp)}
+			if q.Told.Beyond < 0 {
+				on.I, on.Below = notHad, number(q.Told.I)
+			}
+			d.Devices = append(d.Devices, on)
 		}
 		return d
 	}

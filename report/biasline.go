@@ -139,7 +139,7 @@ func lineGrid(l *bias.Line, style Style) grid {
 		}
 		var i, w, t []string
 		for _, d := range s.Devices {
-			i = append(i, bias.AmpWords(d.I))
+			i = append(i, drawnCell(d.Told))
 			if isNumber(d.Power) {
 				w = append(w, FormatTwoDigits(d.Power, "W"))
 			}
@@ -177,7 +177,7 @@ func biasSheetGrid(b Bias, style Style) grid {
 			gate = fmt.Sprintf("%.3f", l.Cold.Gate)
 			var each []string
 			for _, d := range l.Cold.Devices {
-				each = append(each, bias.AmpWords(d.I))
+				each = append(each, drawnCell(d.Told))
 			}
 			idle = strings.Join(each, ", ")
 			if n := b.Plan.Network; n != nil {

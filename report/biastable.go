@@ -53,7 +53,7 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 	thermalFacts(p, &pl.Thermal, style)
 	if l := b.Extremes; l != nil && l.Cold.Err == nil {
 		fact(p, "on one line", fmt.Sprintf("%s and %s, the devices at the ends, share %s as %s and %s (%s)", Clean(l.Names[0]), Clean(l.Names[1]),
-			FormatGiven(l.LineOptions.Total, "A"), bias.AmpWords(l.Cold.Devices[0].I), bias.AmpWords(l.Cold.Devices[1].I), sourceWords(l.Source)), style)
+			FormatGiven(l.LineOptions.Total, "A"), bias.DrawnWords(l.Cold.Devices[0].Told), bias.DrawnWords(l.Cold.Devices[1].Told), sourceWords(l.Source)), style)
 	}
 	if pl.Network != nil {
 		p.line("")
@@ -250,7 +250,7 @@ func nowFacts(p *printer, b Bias, style Style) {
 		fact(p, "idle current", words, style)
 	}
 	if isNumber(n.Share) && len(n.Parts) > 0 {
-		words := fmt.Sprintf("the tolerances make %.0f %% of the variance, the devices the rest", 100*n.Share)
+		words := fmt.Sprintf("the tolerances make %.0f %% of the variance (each taken as evenly spread), the devices the rest", 100*n.Share)
 		if n.Dominant != "" {
 			words += fmt.Sprintf("; they dominate, the %s most of all, and sorting does not mend that", n.Dominant)
 		}

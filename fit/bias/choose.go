@@ -188,7 +188,8 @@ func (n *Network) recentre(series []Series, want Range) Trim {
 				if best, ok := m.covering(s, t.Change, want, middle); ok {
 					t.Network, t.Series, t.Found = best, s, true
 					t.Reach, t.Sure = best.Reach(), best.Sure()
-					t.From, t.To = best.Setting(want.Low), best.Setting(want.High)
+					from, to := best.Setting(want.Low), best.Setting(want.High)
+					t.From, t.To = math.Min(from, to), math.Max(from, to)
 					return t
 				}
 			}

@@ -33,9 +33,10 @@ func (o *LineOptions) hot() bool {
 
 // On is what a device on a line does in one state.
 type On struct {
-	I     float64 // A
-	Power float64 // W, in the device; NaN: V_DS not given
-	Temp  float64 // °C, of the device; NaN: not told
+	I     float64   // A, as solved for
+	Told  fit.Drawn // A, the same as far as anything tells: less than the end of a curve is only that
+	Power float64   // W, in the device; NaN: V_DS not given
+	Temp  float64   // °C, of the device; NaN: not told
 }
 
 // State is a whole line in one state.
@@ -267,8 +268,11 @@ func (s *solver) state(gate float64, hot bool) State {
 			d.Temp = s.temp(i)
 			inner -= s.o.Tempco * (d.Temp - s.o.Temp)
 		}
-		if s.ds[k].At(inner).Beyond > 0 {
+		switch d.Told = s.ds[k].At(inner); {
+		case d.Told.Beyond > 0:
 			return State{Gate: gate, Err: fmt.Errorf("device %d: %w", k+1, ErrBeyond)}
+		case d.Told.Beyond == 0:
+			d.Told.I = i
 		}
 		out.Devices, out.Total = append(out.Devices, d), out.Total+i
 	}

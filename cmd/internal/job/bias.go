@@ -62,6 +62,9 @@ func Bias(ctx context.Context, env *Env, name string, o SheetOptions, rq BiasReq
 		return failed("--idle 250mA, or gatesill lot edit "+Quote(name)+" --idle-current 250mA", "lot %q has no idle current", name)
 	}
 	b := report.Bias{Sheet: &s}
+	if w, ok := unlike(&s); ok {
+		b.Warnings = append(b.Warnings, w)
+	}
 	opt, err := rq.options(env, &s, &b)
 	if err != nil {
 		return err
