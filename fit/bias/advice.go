@@ -52,10 +52,19 @@ func coverWords(c Covered) string {
 	return text
 }
 
-// Ways are the ways to serve the lot, in sentences, none preferred: another resistor, another trimmer,
-// one resistor a bin. Empty without a network.
+// Ways are the ways to serve the lot, in sentences, none preferred: as it is where that
+// does, another resistor, another trimmer, one resistor a bin. Empty without a network.
 func (p *Plan) Ways() []string {
 	var out []string
+	if n := p.Now; n != nil && n.Trimmed && isNumber(p.Band.Low) {
+		reach, whose := n.Sure, "every board reaches"
+		if n.Given {
+			reach, whose = n.Reach, "the trimmer reaches"
+		}
+		if reach.Holds(p.Band.Low) && reach.Holds(p.Band.High) {
+			out = append(out, fmt.Sprintf("As it is, %s %.3f to %s, what 95 %% of the lot need: nothing has to change.", whose, p.Band.Low, volts(p.Band.High)))
+		}
+	}
 	if n := p.Network; n != nil {
 		if text := ResistorWords(p.Choices, n); text != "" {
 			out = append(out, text)
@@ -70,7 +79,7 @@ func (p *Plan) Ways() []string {
 			t.Sure.Low, volts(t.Sure.High), t.Wanted.Low, volts(t.Wanted.High), 100*t.From, 100*t.To))
 	} else if t != nil {
 		out = append(out, fmt.Sprintf("No trimmer reaches %.3f to %s on every board with these tolerances.", t.Wanted.Low, volts(t.Wanted.High)))
-	} else if p.Reach != nil && isNumber(p.Band.Low) {
+	} else if p.Reach != nil && isNumber(p.Band.Low) && len(out) == 0 {
 		out = append(out, fmt.Sprintf("Re-centre the trimmer: it has to reach %.3f to %s.", p.Band.Low, volts(p.Band.High)))
 	}
 	if len(p.Bins) > 1 {
