@@ -117,8 +117,8 @@ func (b *BinChoice) worst(side int) float64 {
 }
 
 // ResistorWords says which value of one resistor brings the gate voltage to where it is
-// wanted: "Change the top resistor from 1.96 kΩ to 1.82 kΩ (E96): 3.179 V, -9.4 mV from the centre; ...". "" where no
-// choice changes only one.
+// wanted: "Change the top resistor from 1.96 kΩ to 1.82 kΩ (E96): 3.179 V, -9.4 mV from
+// the centre; ...". "" where no choice changes only one.
 func ResistorWords(choices []Choice, from *Network) string {
 	for _, what := range []string{ChangeTop, ChangeBottom} {
 		value := func(n *Network) float64 {
@@ -156,8 +156,9 @@ func ResistorWords(choices []Choice, from *Network) string {
 	return ""
 }
 
-// ResistorFor is [ResistorWords] for a network and the gate voltage wanted, with values of these
-// series: for a comparison that says a bias resistor has to change. "" where the network is not complete or cannot give it.
+// ResistorFor is [ResistorWords] for a network and the gate voltage wanted, with values
+// of these series: for a comparison that says a bias resistor has to change. "" where
+// the network is not complete or cannot give it. Checked: TestAgainst.
 func ResistorFor(n *Network, gate float64, series []Series) string {
 	if n.Check() != nil || !n.Complete() || !(gate/n.Supply > 0 && gate/n.Supply < 1) {
 		return ""
@@ -169,8 +170,9 @@ func ResistorFor(n *Network, gate float64, series []Series) string {
 	return ResistorWords(all, n)
 }
 
-// ExtremeLine is the devices with the least and the greatest gate voltage on one line; nil where
-// fewer than two have a current that is told. The total is twice the idle current where o has none.
+// ExtremeLine is the devices with the least and the greatest gate voltage on one line;
+// nil where fewer than two have a current that is told. The total is twice the idle
+// current where o has none.
 func (p *Plan) ExtremeLine(o LineOptions) *Line {
 	var lo, hi *Unit
 	for _, u := range p.counted() {

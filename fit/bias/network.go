@@ -27,8 +27,8 @@ var (
 //	                  |
 //	                 0 V               trimmer AtGate
 //
-// and InBottom the first with a trimmer as a variable resistor between bottom and 0 V. Nothing flows into the gate.
-// A negative supply gives negative gate voltages.
+// and InBottom the first with a trimmer as a variable resistor between bottom and 0 V.
+// Nothing flows into the gate. A negative supply gives negative gate voltages.
 type Network struct {
 	Supply    float64 // V, with its sign
 	SupplyTol float64 // relative, 0.04 is ± 4 %

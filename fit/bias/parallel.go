@@ -91,15 +91,15 @@ type Member struct {
 //	I_k = f_k(V - I_k R_S - s (T_k - T_0)),  Σ I_k = total,  T_k = sink + I_k (V_DS - I_k R_S) R_th
 //
 // where f_k is the device's own curve (see [fit.Result.Drain]) and s the coefficient of
-// the gate voltage. Cold, T_k = T_0. For a given V each device stands alone; its current is the least
-// that solves its equation, to which it comes when it is switched on. The sum rises with V, which is
-// found by halving. A state without a solution has Err: [ErrRunaway] where heating
-// outruns the resistors (the sum jumps over the total, or a device finds no solution up
+// the gate voltage. Cold, T_k = T_0. For a given V each device stands alone; its current
+// is the least that solves its equation, to which it comes when it is switched on. The
+// sum rises with V, which is found by halving. A state without a solution has Err:
+// [ErrRunaway] where heating outruns the resistors (the sum jumps over the total, or a device finds no solution up
 // to ten times the total), [ErrBeyond] where a device would carry more than its curve
 // tells. Curves are taken at the V_DS at which they were measured.
 //
-// Errors: [ErrLine] where devices are missing or their currents are not told. Checked: TestParalleledAgainstSimulator,
-// TestLineSolves, TestLineExtremes.
+// Errors: [ErrLine] where devices are missing or their currents are not told. Checked:
+// TestParalleledAgainstSimulator, TestLineSolves, TestLineExtremes, TestRunaway.
 func LineOf(members []Member, idle, beta float64, pchannel bool, o LineOptions) (*Line, error) {
 	l := &Line{LineOptions: o}
 	if len(members) < 2 {
