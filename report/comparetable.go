@@ -213,7 +213,7 @@ func rawFact(c *Compared) string {
 	}
 	text := ShiftWords(c.Raw, c.Raw+c.Low-c.Shift, c.Raw+c.High-c.Shift, "V")
 	if c.ForTemp != 0 {
-		text += "; taken off for the temperature: " + offsetWords(roundTo(c.ForTemp, 3), math.NaN())
+		text += "; taken off for the temperature: " + offsetWords(c.ForTemp, c.TempU)
 	}
 	return text
 }

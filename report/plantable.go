@@ -77,7 +77,15 @@ func Chance(x float64) string {
 }
 
 // share writes a share that was given, or one that is compared with such.
-func share(x float64) string { return fmt.Sprintf("%.3g %%", 100*x) }
+// Only all of it is 100 %.
+func share(x float64) string {
+	for digits := 3; digits < 10; digits++ {
+		if text := fmt.Sprintf("%.*g", digits, 100*x); x >= 1 || text != "100" {
+			return text + " %"
+		}
+	}
+	return "more than 99.9999999 %"
+}
 
 // given writes a voltage that was given, or that followed from what was.
 func given(x float64) string {

@@ -17,12 +17,26 @@ func (c *comparing) decide() {
 		c.moreWithoutShift()
 		return
 	}
+	c.judge()
+	if o.Verdict == TooFew {
+		c.more()
+		switch {
+		case math.Abs(o.Shift) > c.opt.Margin:
+			o.Sentence += "; the shift seen lies outside it, and more devices would rather show that"
+		case o.MoreText != "":
+			o.Sentence += "; " + o.MoreText
+		}
+	}
+	o.Sentence += c.benchWords() + c.offWords() + c.pairWords() + c.populationWords()
+}
+
+// judge finds the verdict of a shift that there is.
+func (c *comparing) judge() {
 	if math.IsNaN(c.opt.Margin) {
 		c.decideByZero()
 	} else {
 		c.decideByMargin()
 	}
-	o.Sentence += c.benchWords() + c.offWords() + c.pairWords() + c.populationWords()
 }
 
 // decideByZero is the verdict without a margin.
@@ -90,13 +104,6 @@ func (c *comparing) decideByMargin() {
 	default:
 		o.Verdict = TooFew
 		o.Sentence = fmt.Sprintf("too few to tell: the shift is %s, and %s, lies partly inside and partly outside the %s", shiftWithin(o.Shift, o.MarginLow, o.MarginHigh), interval, margin)
-		c.more()
-		switch {
-		case math.Abs(o.Shift) > m:
-			o.Sentence += "; the shift seen lies outside it, and more devices would rather show that"
-		case o.MoreText != "":
-			o.Sentence += "; " + o.MoreText
-		}
 	}
 }
 

@@ -7,6 +7,7 @@ import (
 	"slices"
 	"time"
 
+	"gatesill/fit"
 	"gatesill/fit/stats"
 )
 
@@ -336,7 +337,7 @@ func (h *History) say() {
 		case !math.IsNaN(h.Tempco):
 			add("not corrected for temperature: that of some readings is not known")
 		case math.IsNaN(h.From.TempLow) || math.IsNaN(h.To.TempLow):
-			add("temperatures are not all known; a power part changes by some -2 to -8 mV/K (common practice, no source)")
+			add("temperatures are not all known; a power part changes by some " + fit.UsualSlope)
 		case math.Abs(warmer) >= 0.5:
 			add("measured at other temperatures, and not corrected: give the coefficient of the part, for instance --tempco -4mV/K")
 		}

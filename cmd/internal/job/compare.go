@@ -160,7 +160,7 @@ func (e *Env) failOf(sheets []report.Sheet) error {
 // the idle current compared at, else the test current.
 func (e *Env) referenceSheet(ctx context.Context, name string, o SheetOptions, rq CompareRequest) (report.Sheet, error) {
 	if rq.By == "vgs-idle" && o.At.IsKnown() {
-		o.Idle, o.At = record.Known(math.Abs(o.At.Float())), record.Num{}
+		o.Idle, o.At = o.At, record.Num{}
 	}
 	return e.Sheet(ctx, name, o)
 }
