@@ -23,14 +23,15 @@ var mayImport = map[string][]string{
 	"fit/match":         {"fit", "fit/stats", "fit/lot", "fit/match/blossom"},
 	"fit/match/blossom": {},
 	"fit/compare":       {"fit", "fit/stats", "fit/lot"},
+	"fit/bias":          {"fit", "fit/stats", "fit/lot"},
 	"fit/gauge":         {"fit", "fit/stats"},
 	"fit/plan":          {"fit/stats"},
-	"report":            {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan"},
-	"report/screen":     {"store/record", "report"},                                                                        // the terminal view of a live bench
-	"report/internal":   {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report"}, // invented sheets for tests
-	"report/svg":        {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report", "report/internal/"},
-	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report", "report/svg", "report/internal/"},
-	"report/live":       {"store/record", "fit", "fit/lot", "fit/match", "fit/compare", "fit/gauge", "fit/plan", "report", "report/svg", "report/internal/"},
+	"report":            {"store/record", "fit", "fit/lot", "fit/match", "fit/bias", "fit/compare", "fit/gauge", "fit/plan"},
+	"report/screen":     {"store/record", "report"},                                                                                    // the terminal view of a live bench
+	"report/internal":   {"store/record", "fit", "fit/lot", "fit/match", "fit/bias", "fit/compare", "fit/gauge", "fit/plan", "report"}, // invented sheets for tests
+	"report/svg":        {"store/record", "fit", "fit/lot", "fit/match", "fit/bias", "fit/compare", "fit/gauge", "fit/plan", "report", "report/internal/"},
+	"report/page":       {"store/record", "fit", "fit/lot", "fit/match", "fit/bias", "fit/compare", "fit/gauge", "fit/plan", "report", "report/svg", "report/internal/"},
+	"report/live":       {"store/record", "fit", "fit/lot", "fit/match", "fit/bias", "fit/compare", "fit/gauge", "fit/plan", "report", "report/svg", "report/internal/"},
 	"cmd/internal/job":  {"store", "acquire", "acquire/", "fit", "fit/", "report", "report/", "store/record"},
 	"cmd/gatesill":      {"cmd/internal/job", "store/record", "acquire", "acquire/table", "acquire/keeper", "acquire/rehearsal", "report"},
 }

@@ -70,7 +70,8 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
 	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (meters --write: write over the file)")
 	root.AddCommand(
-		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env), matchCmd(env), setCmd(env), compareCmd(env), gaugeCmd(env),
+		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
+		matchCmd(env), setCmd(env), biasCmd(env), compareCmd(env), gaugeCmd(env),
 		planCmd(env), reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
 	root.AddCommand(processCmds()...)

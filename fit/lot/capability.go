@@ -149,6 +149,16 @@ func bandOfLot(s *sample, populations int) ToleranceBand {
 	return b
 }
 
+// Tolerance is the interval that covers 95 % of what a lot's values are drawn from
+// with 95 % confidence, as [ToleranceBand] has it.
+//
+// Inputs: x, the values of the devices that have one, in any order, not modified;
+// without, the number of devices that have none; the populations that the lot was found to be.
+// Checked: TestBandOfLots.
+func Tolerance(x []float64, without, populations int) ToleranceBand {
+	return bandOfLot(&sample{x: x, without: without}, populations)
+}
+
 // freeFewest is the number of devices whose range covers 95 % of the parts with 95 %
 // confidence, whatever their distribution. Checked: TestBandOfLots.
 const freeFewest = 93
