@@ -10,7 +10,6 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/bias"
 	"gatesill/fit/lot"
-	"gatesill/store/record"
 )
 
 // Bias is the gate bias of a lot, ready to be laid out.
@@ -32,6 +31,11 @@ type Bias struct {
 // of the devices. With lines asked for it writes those and leaves out what is of the lot.
 func BiasTable(w io.Writer, b Bias, style Style) error {
 	p := &printer{w: w}
+	biasTable(p, b, style)
+	return p.err
+}
+
+func biasTable(p *printer, b Bias, style Style) {
 	pl := b.Plan
 	p.line("%s", style.paint(fmt.Sprintf("Gate bias of lot %s at %s.", Clean(pl.Lot), FormatGiven(pl.Idle, "A")), bold))
 	if len(b.Lines) > 0 {
@@ -45,7 +49,7 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 			p.grid(biasSheetGrid(b, style))
 		}
 		biasNotes(p, b, style)
-		return p.err
+		return
 	}
 	p.line("")
 	fact(p, "centre", centreFact(b), style)
@@ -92,7 +96,6 @@ func BiasTable(w io.Writer, b Bias, style Style) error {
 	p.line("")
 	p.grid(unitGrid(b, style))
 	biasNotes(p, b, style)
-	return p.err
 }
 
 // middleWords says what a trimmer is taken for.
@@ -333,29 +336,11 @@ func unitGrid(b Bias, style Style) grid {
 	pl := b.Plan
 	var names, notes, draws, settings []string
 	var values, us []float64
-	states, flagged := map[string]string{}, b.Sheet.Verdicts()
-	for _, d := range b.Sheet.Devices {
-		if states[d.Name] = WordsOf(d.State()).Word; d.State() == fit.Measured {
-			states[d.Name] = "no value"
-		}
-		if d.Role == record.Control {
-			states[d.Name] = "control part"
-		}
-	}
+	note := b.UnitNotes()
 	for i := range pl.Units {
 		u := &pl.Units[i]
 		names, values, us = append(names, Clean(u.Name)), append(values, u.Gate.Value), append(us, u.Gate.U)
-		note := ""
-		if u.Why != "" {
-			note = states[u.Name]
-		}
-		if n := pl.Now; n != nil && n.CoveredBy != "" && u.Gate.Ok() && !u.Covered && u.Counts {
-			note = "outside"
-		}
-		if u.Gate.Ok() && flagged[u.Name].Flagged {
-			note = strings.TrimPrefix(note+", flagged", ", ")
-		}
-		notes = append(notes, note)
+		notes = append(notes, note(u))
 		draw, setting := "", ""
 		if pl.Now != nil && u.Gate.Ok() {
 			draw = drawnCell(u.At)
@@ -387,32 +372,9 @@ func settingCell(x, turns float64) string {
 	return travel(x)
 }
 
-// biasNotes are what was taken for granted, and the warnings.
+// biasNotes writes what was taken for granted, and the warnings.
 func biasNotes(p *printer, b Bias, style Style) {
-	var notes []string
-	if n := b.Plan.Network; n != nil {
-		if b.NoSupplyTol || b.NoResistorTol {
-			what := "supply and resistors have"
-			switch {
-			case !b.NoSupplyTol:
-				what = "the resistors have"
-			case !b.NoResistorTol:
-				what = "the supply has"
-			}
-			notes = append(notes, "No tolerance was given that "+what+": taken as exact (--supply-tol, --resistor-tol).")
-		}
-		if b.AssumedTrimmer && (n.Trimmer > 0 || b.Plan.Trim != nil) {
-			notes = append(notes, fmt.Sprintf("A trimmer's value is taken as ± %.0f %% (common practice; --trimmer-tol says another).", 100*n.TrimTol))
-		}
-		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones. Everything holds at the V_DS of the readings.")
-	}
-	if b.Plan.Now != nil && b.Plan.Now.Trimmed && len(b.Lines) == 0 {
-		notes = append(notes, "trimmer: part of its travel from the end with the gate voltage nearest to 0 V, everything else nominal.")
-	}
-	if t := b.Plan.Thermal; t.Assumed && (isNumber(t.ZeroGate) || len(b.Lines) > 0) {
-		notes = append(notes, "The temperature of the lot is not known: 25 °C is taken.")
-	}
-	if len(notes) > 0 {
+	if notes := b.TakenForGranted(); len(notes) > 0 {
 		p.line("")
 		for _, n := range notes {
 			wrapped(p, "", "", n, style.Width)

@@ -70,6 +70,10 @@ func fact(p *printer, label, words string, style Style) {
 	if words == "" {
 		return
 	}
+	if p.facts != nil {
+		*p.facts = append(*p.facts, Field{label, words})
+		return
+	}
 	head := "  " + label
 	if n := labelWidth - displayWidth(head); n > 0 {
 		head += strings.Repeat(" ", n)

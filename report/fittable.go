@@ -15,8 +15,9 @@ func itoa(n int) string { return strconv.Itoa(n) }
 // printer writes text and remembers the first error, so that a layout reads as
 // what it lays out.
 type printer struct {
-	w   io.Writer
-	err error
+	w     io.Writer
+	err   error
+	facts *[]Field // gathers what fact would write; nil: it is written
 }
 
 func (p *printer) line(format string, args ...any) {

@@ -58,6 +58,7 @@ gate line share of a total current; it may be given several times.`,
 	num(fs, &rq.VDS, "vds", "V", "drain voltage, for the dissipation")
 	num(fs, &rq.Rth, "rth", "K/W", "from each device to the heat sink (default: the part's, to its case)")
 	num(fs, &rq.Sink, "sink", "degC", "heat sink when warm (default: the temperature of the readings)")
+	fs.StringVarP(&rq.Page, "output", "o", "", "also write it as one HTML page to print: `FILE.html`")
 	if err := cmd.RegisterFlagCompletionFunc("reference", lots(env, false)); err != nil {
 		panic(err) // the flag is not there
 	}

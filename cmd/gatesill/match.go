@@ -55,6 +55,7 @@ named, or all of its part, as partners for one device: the survivor of a pair.`,
 	fs.StringSliceVar(&rq.Lock, "lock", nil, "store these sets: `1,3`, or all; with --partner-for the partner in that place")
 	fs.StringVar(&rq.Unit, "unit", "", "what locked sets are for, in `WORDS`")
 	fs.StringVar(&rq.Labels, "labels", "", "also write lines for labels (serial, gate voltage, set) to `FILE`")
+	fs.StringVarP(&rq.Page, "output", "o", "", "also write the sets as one HTML page to print: `FILE.html`")
 	complete := func(flag string, f cobra.CompletionFunc) {
 		if err := cmd.RegisterFlagCompletionFunc(flag, f); err != nil {
 			panic(err) // the flag is not there

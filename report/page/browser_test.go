@@ -66,13 +66,19 @@ func serve(t *testing.T, s report.Sheet) *site {
 	t.Helper()
 	var b bytes.Buffer
 	require.NoError(t, reportpage.Write(&b, s))
+	return servePage(t, b.Bytes())
+}
+
+// servePage serves these bytes.
+func servePage(t *testing.T, b []byte) *site {
+	t.Helper()
 	st := &site{}
 	st.Server = httptest.NewServer(http.HandlerFunc(func(w http.ResponseWriter, r *http.Request) {
 		st.mu.Lock()
 		st.asked = append(st.asked, r.URL.Path)
 		st.mu.Unlock()
 		w.Header().Set("Content-Type", "text/html; charset=utf-8")
-		w.Write(b.Bytes())
+		w.Write(b)
 	}))
 	t.Cleanup(st.Close)
 	return st

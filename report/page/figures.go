@@ -32,6 +32,7 @@ type picture struct {
 type curvesFigure struct {
 	Switch   string // name of the switch between its pictures
 	Of       string // whose curves; "" of the lot of the page
+	Choice   string // what the switch chooses; "": the current axis
 	Pictures []picture
 	Caption  template.HTML
 	Data     *table

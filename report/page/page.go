@@ -1,5 +1,5 @@
 // Package page writes the report of a lot as one HTML file to read, print or
-// keep. Everything it needs is inside: no font, script, style or picture is
+// keep, and pages of one purpose that print on one sheet of paper: sets, and bias. Everything it needs is inside: no font, script, style or picture is
 // fetched, and the page's own policy forbids it.
 //
 // It computes no results and knows no present time: the same sheet always gives
@@ -37,15 +37,20 @@ func Write(w io.Writer, s report.Sheet) error {
 	v := newView(&s)
 	css := svg.Style + style + pageRule(&s)
 	v.Style, v.Script = template.CSS(css), template.JS(script)
-	v.Policy = strings.Join([]string{
-		"default-src 'none'", "img-src data:", "style-src " + hash(css), "script-src " + hash(script),
-		"base-uri 'none'", "form-action 'none'",
-	}, "; ")
+	v.Policy = policy(css, script)
 	b := bufio.NewWriterSize(w, 1<<16)
 	if err := page.Execute(b, v); err != nil {
 		return fmt.Errorf("report page of lot %q: %w", s.Lot.Name, err)
 	}
 	return b.Flush()
+}
+
+// policy lets the page use what is inside it and nothing else.
+func policy(css, script string) string {
+	return strings.Join([]string{
+		"default-src 'none'", "img-src data:", "style-src " + hash(css), "script-src " + hash(script),
+		"base-uri 'none'", "form-action 'none'",
+	}, "; ")
 }
 
 // hash names a text to the page's policy: only what was written here may run.
@@ -60,10 +65,14 @@ func pageRule(s *report.Sheet) string {
 	if s.Hash != "" {
 		left += "  ·  checksum " + s.Hash[:min(12, len(s.Hash))]
 	}
+	return footRule(left) + "@page wide{size:A4 landscape}\n"
+}
+
+// footRule is the rule of a printed page with words at its foot.
+func footRule(left string) string {
 	return "@page{size:A4;margin:16mm 14mm 18mm;" +
 		"@bottom-left{content:" + cssString(left) + ";font:8pt sans-serif;color:#444}" +
-		`@bottom-right{content:"page " counter(page) " of " counter(pages);font:8pt sans-serif;color:#444}}` +
-		"@page wide{size:A4 landscape}\n"
+		`@bottom-right{content:"page " counter(page) " of " counter(pages);font:8pt sans-serif;color:#444}}` + "\n"
 }
 
 // cssString writes text as a CSS string: everything but plain letters, digits

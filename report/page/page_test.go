@@ -18,6 +18,7 @@ import (
 
 	"gatesill/fit"
 	"gatesill/fit/lot"
+	"gatesill/fit/match"
 	"gatesill/report"
 	"gatesill/report/internal/invented"
 	reportpage "gatesill/report/page"
@@ -205,8 +206,11 @@ func TestHostileNames(t *testing.T) {
 // The policy of the page names exactly the style and the script that are in it,
 // and nothing in it points outside.
 func TestPolicyAndNothingFetched(t *testing.T) {
+	pages := []string{writeSets(t, matchedOf(t, match.Options{By: byBias(0.02)}, hostileSheet())), writeBias(t, biasOf(t, hostileSheet(), trimmed()))}
 	for _, s := range []report.Sheet{invented.Lot(invented.Options{Devices: 30, Points: 20}), hostileSheet(), {}} {
-		page := write(t, s)
+		pages = append(pages, write(t, s))
+	}
+	for _, page := range pages {
 		between := func(a, b string) string {
 			i := strings.Index(page, a) + len(a)
 			return page[i : i+strings.Index(page[i:], b)]

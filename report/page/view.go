@@ -36,6 +36,7 @@ type view struct {
 	Spec       *specView // nil: the part has no limits
 	Bins       *table
 	Unsorted   []group // in no bin, by reason
+	Sets       *table  // stored ones with a device of the lot; nil: none
 	Devices    deviceTable
 	Flags      []named
 	FlagCount  string
@@ -179,6 +180,7 @@ func newView(s *report.Sheet) *view {
 	v.figures(k)
 	v.spread(k)
 	v.bins(k)
+	v.storedSets(k)
 	v.specification(k)
 	v.devices(k)
 	v.flags(k)

@@ -49,12 +49,12 @@ func (c *canvas) grid(x, y *scale, xs, ys []tick) {
 	}
 	c.raw(`"/>`)
 	for _, k := range xs {
-		if !k.minor {
+		if !k.minor && k.label != "" {
 			c.text("tick", x.at(k.value), c.d+17, "middle", k.label)
 		}
 	}
 	for _, k := range ys {
-		if !k.minor {
+		if !k.minor && k.label != "" {
 			c.text("tick", c.l-7, y.at(k.value)+4, "end", k.label)
 		}
 	}

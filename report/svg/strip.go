@@ -1,6 +1,7 @@
 package svg
 
 import (
+	"cmp"
 	"io"
 	"math"
 	"slices"
@@ -57,39 +58,9 @@ func AppendStrip(dst []byte, spots []Spot, o StripOptions) ([]byte, Drawn) {
 	}
 	c := &canvas{b: dst, f: o.Frame}
 	c.l, c.t, c.r, c.d = 20, 30, o.Width-20, o.Height-46
-	s := &strip{canvas: c, o: o}
-	flagged := 0
-	for _, p := range spots {
-		if !drawable(p.X) {
-			s.drawn.Empty++
-			continue
-		}
-		s.spots = append(s.spots, p)
-		if p.Flag != "" {
-			flagged++
-		}
-	}
-	// By value, then by name: the order of the input does not matter.
-	slices.SortStableFunc(s.spots, func(a, b Spot) int {
-		switch {
-		case a.X < b.X:
-			return -1
-		case a.X > b.X:
-			return 1
-		case a.Name < b.Name:
-			return -1
-		case a.Name > b.Name:
-			return 1
-		}
-		return 0
-	})
-	if len(o.Above) > 0 {
-		if o.Negative {
-			c.l += 92
-		} else {
-			c.r -= 92
-		}
-	}
+	s := &strip{canvas: c, o: o, why: "flagged: "}
+	flagged := s.take(spots)
+	s.room()
 	s.ranges()
 	role := "img"
 	if o.Focus > 0 && flagged > 0 {
@@ -112,9 +83,41 @@ func AppendStrip(dst []byte, spots []Spot, o StripOptions) ([]byte, Drawn) {
 type strip struct {
 	*canvas
 	o     StripOptions
+	why   string // before the reason of a flag
 	spots []Spot // ascending
 	x     scale
 	drawn Drawn
+}
+
+// take keeps what can be drawn, by value, then by name: the order of the input does
+// not matter. It counts the flagged ones.
+func (s *strip) take(spots []Spot) (flagged int) {
+	for _, p := range spots {
+		if !drawable(p.X) {
+			s.drawn.Empty++
+			continue
+		}
+		s.spots = append(s.spots, p)
+		if p.Flag != "" {
+			flagged++
+		}
+	}
+	slices.SortStableFunc(s.spots, func(a, b Spot) int {
+		return cmp.Or(cmp.Compare(a.X, b.X), cmp.Compare(a.Name, b.Name))
+	})
+	return flagged
+}
+
+// room leaves place beyond the end of the axis for devices above every value.
+func (s *strip) room() {
+	if len(s.o.Above) == 0 {
+		return
+	}
+	if s.o.Negative {
+		s.l += 92
+	} else {
+		s.r -= 92
+	}
 }
 
 // ranges decides the axis: all values, and limits and bin edges near them.
@@ -331,7 +334,7 @@ func (s *strip) flagged(at func(int) (float64, float64), size float64) {
 		s.ref(p.Ref)
 		if k < s.f.Focus {
 			s.raw(` tabindex="0" role="img" aria-label="`)
-			s.words(p.Name + ", flagged: " + p.Flag)
+			s.words(p.Name + ", " + s.why + p.Flag)
 			s.raw(`"`)
 		}
 		s.raw(` d="M`)
@@ -345,7 +348,7 @@ func (s *strip) flagged(at func(int) (float64, float64), size float64) {
 		s.raw("h")
 		s.num(-2.1 * r)
 		s.raw(`z"><title>`)
-		s.words(p.Name + " (flagged: " + p.Flag + ")")
+		s.words(p.Name + " (" + s.why + p.Flag + ")")
 		s.raw(`</title></path>`)
 		s.drawn.Shown++
 		k++

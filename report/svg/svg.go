@@ -1,6 +1,8 @@
 // Package svg draws the plots: transfer curves over the gate voltage, the strip
 // plot of one quantity with its bins, and of two lots their distributions, their
-// curves, the shift between them and the run of lots it stands in. It is the one
+// curves, the shift between them and the run of lots it stands in; of matched
+// devices the sets along the axis, what a tolerance gives and their curves side by
+// side; of a bias network what it covers and what devices draw. It is the one
 // renderer for files, for the report page and for the bench page.
 //
 // It computes nothing but positions on the paper, needs no script and no font,
@@ -41,6 +43,7 @@ const Style = `.plot{--plot-ink:#1b1f24;--plot-quiet:#d9dde1;--plot-soft:#5a6470
 .plot .reft{fill:var(--plot-mark);font-size:12px}
 .plot .lim{fill:none;stroke:var(--plot-flag);stroke-width:1.2;stroke-dasharray:5 3}
 .plot .limt{fill:var(--plot-flag);font-size:12px}
+.plot .plain{fill:currentColor}
 .plot .sub{font-size:76%}
 .plot .lines path{fill:none;stroke:var(--plot-line);stroke-linejoin:round;stroke-linecap:round}
 .plot .lines .flag{stroke:var(--plot-flag);stroke-opacity:1}
@@ -72,6 +75,18 @@ const Style = `.plot{--plot-ink:#1b1f24;--plot-quiet:#d9dde1;--plot-soft:#5a6470
 .plot .room{fill:var(--plot-mark);fill-opacity:.12}
 .plot .mthis:hover,.plot .mthat:hover,.plot .mthis.on{stroke:var(--plot-flag);stroke-width:3}
 .plot .fine .thin:hover,.plot .fine .thin.on{stroke:var(--plot-flag);stroke-opacity:1;stroke-width:11}
+.plot .rule{fill:none;stroke:var(--plot-mark);stroke-width:2}
+.plot .bar{fill:none;stroke:var(--plot-line);stroke-width:2.4;stroke-linecap:round;stroke-opacity:.55}
+.plot .bar.apart{stroke:var(--plot-flag);stroke-dasharray:3 4;stroke-opacity:1}
+.plot .mhollow{fill:var(--plot-paper);stroke:var(--plot-line);stroke-width:1.6}
+.plot .gname{font-size:12px;font-weight:600}
+.plot .grp:hover .bar,.plot .bar.on{stroke:var(--plot-flag);stroke-opacity:1}
+.plot .left path{fill:none;stroke:var(--plot-soft);stroke-width:1.7}
+.plot .left path:hover,.plot .left .on{stroke:var(--plot-flag)}
+.plot .mhollow:hover,.plot .mhollow.on{stroke:var(--plot-flag);stroke-width:3}
+.plot .mate{fill:none;stroke:var(--plot-line);stroke-width:7.5;stroke-linejoin:round}
+.plot .mate:hover,.plot .mate.on{stroke:var(--plot-flag);stroke-width:13}
+.plot .sure{fill:var(--plot-mark);fill-opacity:.16}
 @media (forced-colors:active){.plot{--plot-ink:CanvasText;--plot-quiet:GrayText;--plot-soft:CanvasText;--plot-paper:Canvas;--plot-line:LinkText;--plot-flag:Highlight;--plot-mark:CanvasText}}
 `
 

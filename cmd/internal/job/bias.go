@@ -3,6 +3,7 @@ package job
 import (
 	"context"
 	"errors"
+	"io"
 	"math"
 	"slices"
 	"strings"
@@ -11,6 +12,7 @@ import (
 	"gatesill/fit/bias"
 	"gatesill/fit/lot"
 	"gatesill/report"
+	"gatesill/report/page"
 	"gatesill/store/record"
 )
 
@@ -42,6 +44,8 @@ type BiasRequest struct {
 	VDS      record.Num // V
 	Rth      record.Num // K/W; unknown: the part's
 	Sink     record.Num // °C
+
+	Page string // file for the page of the bias; "": none
 }
 
 // usualTrimmerTol is the tolerance of a trimmer that was not given (common practice, no
@@ -52,6 +56,9 @@ const usualTrimmerTol = 0.1
 func Bias(ctx context.Context, env *Env, name string, o SheetOptions, rq BiasRequest) error {
 	if err := rq.check(name); err != nil {
 		return err
+	}
+	if rq.Page == "-" && env.JSON {
+		return Usage("--output FILE.html", "--output -: stdout takes one thing at a time")
 	}
 	o.Idle = rq.Idle
 	s, err := env.Sheet(ctx, name, o)
@@ -91,9 +98,15 @@ func Bias(ctx context.Context, env *Env, name string, o SheetOptions, rq BiasReq
 			return err
 		}
 	}
+	if err := env.sheetPage(rq.Page, "the gate bias", func(w io.Writer) error { return page.WriteBias(w, b) }); err != nil {
+		return err
+	}
 	if env.JSON {
 		env.tellWarnings(b.Warnings)
 		return report.BiasJSON(env.Out, b)
+	}
+	if rq.Page == "-" {
+		return nil
 	}
 	return report.BiasTable(env.Out, b, env.style())
 }

@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"io"
 	"math"
 	"slices"
 	"strconv"
@@ -13,6 +14,7 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/match"
 	"gatesill/report"
+	"gatesill/report/page"
 	"gatesill/store"
 	"gatesill/store/record"
 )
@@ -35,6 +37,7 @@ type MatchRequest struct {
 	Lock           []string   // numbers of sets to store, or "all"
 	Unit           string     // what they are for
 	Labels         string     // file for lines to print on labels
+	Page           string     // file for the page of sets; "": none
 }
 
 // matchKeys are the quantities that devices are matched by, by their names as
@@ -200,6 +203,9 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 	if len(lots) == 0 {
 		return Usage("gatesill match LOT", "match: no lot")
 	}
+	if rq.Page == "-" && (env.JSON || rq.Labels == "-") {
+		return Usage("--output FILE.html", "--output -: stdout takes one thing at a time")
+	}
 	st, err := env.stockOf(ctx, lots, rq)
 	if err != nil {
 		return err
@@ -228,9 +234,12 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 			return err
 		}
 	}
+	if err := env.sheetPage(rq.Page, "sets", func(w io.Writer) error { return page.WriteSets(w, m) }); err != nil {
+		return err
+	}
 	if env.JSON {
 		err = report.MatchJSON(env.Out, m)
-	} else if rq.Labels != "-" {
+	} else if rq.Labels != "-" && rq.Page != "-" {
 		err = report.MatchTable(env.Out, m, env.style())
 	}
 	return errors.Join(err, ctx.Err())

@@ -20,6 +20,9 @@ func partnerFor(ctx context.Context, env *Env, lots []string, rq MatchRequest) e
 	if rq.Size != 2 {
 		return Usage("leave out --size", "--partner-for seeks one partner, not sets of %d", rq.Size)
 	}
+	if rq.Page != "" {
+		return Usage("leave out --output", "--output is the page of sets, and --partner-for makes none")
+	}
 	if rq.Aim != "" || rq.Sets > 0 || rq.Labels != "" {
 		return Usage("gatesill help match", "--partner-for takes no --aim, --sets and --labels: all partners are ranked")
 	}

@@ -173,6 +173,20 @@ func Report(ctx context.Context, env *Env, name, path, reference string, o Sheet
 	return nil
 }
 
+// sheetPage writes a page of one purpose where a file for it is named.
+func (e *Env) sheetPage(path, what string, write func(io.Writer) error) error {
+	if path == "" {
+		return nil
+	}
+	if err := e.WriteFile(path, write); err != nil {
+		return err
+	}
+	if path != "-" {
+		e.talk("page of %s: %s", what, report.Clean(path))
+	}
+	return nil
+}
+
 // reportSheet fits a lot, and compares it with the reference lot where one is
 // named, at the currents of that.
 func (e *Env) reportSheet(ctx context.Context, name, reference string, o SheetOptions, rq CompareRequest) (report.Sheet, error) {
