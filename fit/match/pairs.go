@@ -44,7 +44,7 @@ func (p *problem) couples() *couples {
 			}
 			c.things = append(c.things, it.devices)
 		}
-		c.noun = "pair of packages"
+		c.noun = "package pair"
 	default:
 		return nil
 	}
