@@ -39,8 +39,8 @@ type Drawn struct {
 // Drain tells how the drain current of the device follows its gate voltage.
 //
 // In this order: the device's own curve through the gate voltages at
-// [LevelCurrents] and at the idle current, √I interpolated (monotone cubic, exact for
-// the square law); its gain factor, or that given, with the device's overdrive v at
+// [LevelCurrents], at the idle current and at its highest point, √I interpolated
+// (monotone cubic, exact for the square law); its gain factor, or that given, with the device's overdrive v at
 // the idle current
 //
 //	I = β v²/(2(1+θv)),  v = [θI + √(θ²I²+2βI)]/β + (gate voltage - that at the idle current)
@@ -91,6 +91,34 @@ func (r *Result) CurrentAt(gate, idle, beta float64, pchannel bool) Drawn {
 	return d.At(gate)
 }
 
+// topBeyond is how far in √I the highest point lies beyond the last level to count
+// beside it: a tenth of the current (judgement).
+const topBeyond = 1.05
+
+// CurrentBeyond is [Result.CurrentAt] that goes on beyond the upper end of a curve by
+// the square law with mobility degradation, laid through that end: Beyond stays 1, By
+// is [ByGain], [ByGainGiven] or [ByConductance]. Where no gain is known it is
+// CurrentAt.
+func (r *Result) CurrentBeyond(gate, idle, beta float64, pchannel bool) Drawn {
+	d := r.Drain(idle, beta, pchannel)
+	out := d.At(gate)
+	_, b, theta := r.Overdrive(idle, beta)
+	if out.Beyond <= 0 || math.IsNaN(b) {
+		return out
+	}
+	end := len(d.v) - 1
+	on := Drain{By: ByGain, sign: d.sign, own: d.v[end], i: out.I, beta: b, theta: theta}
+	switch {
+	case math.Abs(r.Beta.Value) > 0:
+	case math.Abs(r.GmIdle.Value) > 0:
+		on.By = ByConductance
+	default:
+		on.By = ByGainGiven
+	}
+	more := on.At(gate)
+	return Drawn{more.I, 1, on.By}
+}
+
 // alongCurve takes the device's own curve where it has two points or more. Gate
 // voltages are turned so that more of them means more current.
 func (d *Drain) alongCurve(r *Result) bool {
@@ -108,6 +136,10 @@ func (d *Drain) alongCurve(r *Result) bool {
 		curve = append(curve, point{d.own, math.Sqrt(d.i)})
 	}
 	slices.SortFunc(curve, func(a, b point) int { return cmp.Compare(a.root, b.root) })
+	// Close to the last of them the highest point adds only its noise.
+	if top := (point{d.sign * r.Top.Vg, math.Sqrt(r.Top.I)}); top.root > topBeyond*curve[len(curve)-1].root && !math.IsInf(top.v, 0) {
+		curve = append(curve, top)
+	}
 	// Of points that do not rise the later ones are left out.
 	for _, p := range curve {
 		if n := len(d.v); n == 0 || p.v > d.v[n-1] && p.root > d.root[n-1]*(1+1e-9) {

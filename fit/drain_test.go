@@ -95,3 +95,45 @@ func TestDrainRises(t *testing.T) {
 		}
 	})
 }
+
+// A sweep that ends between two of the currents looked at tells up to its highest
+// point; beyond that the gain goes on from there. Square law of 3.8 A/V², by hand.
+func TestDrainToTheEnd(t *testing.T) {
+	const vt, beta = 2.8, 3.8
+	gate := func(i float64) float64 { return vt + math.Sqrt(2*i/beta) }
+	c := idling(gate(0.25))
+	for _, at := range []float64{0.05, 0.1, 0.2} {
+		c.Levels = append(c.Levels, Level{I: at, Vg: gate(at)})
+	}
+	if i := c.CurrentAt(gate(0.29), 0.25, math.NaN(), false); i.Beyond != 1 || math.Abs(i.I-0.25) > 1e-9 {
+		t.Errorf("without its highest point: %+v", i)
+	}
+	c.Top = Level{I: 0.3, Vg: gate(0.3)}
+	if i := c.CurrentAt(gate(0.29), 0.25, math.NaN(), false); i.Beyond != 0 || math.Abs(i.I-0.29) > 1e-4 {
+		t.Errorf("before its highest point: %+v", i)
+	}
+	if i := c.CurrentBeyond(gate(0.4), 0.25, math.NaN(), false); i.Beyond != 1 || math.Abs(i.I-0.3) > 1e-9 || i.By != ByCurve {
+		t.Errorf("no gain: %+v", i)
+	}
+	if i := c.CurrentBeyond(gate(0.4), 0.25, beta, false); i.Beyond != 1 || math.Abs(i.I-0.4) > 1e-9 || i.By != ByGainGiven {
+		t.Errorf("by the gain given: %+v", i)
+	}
+	c.Beta = Quantity{Value: beta}
+	if i := c.CurrentBeyond(gate(0.4), 0.25, 99, false); i.Beyond != 1 || math.Abs(i.I-0.4) > 1e-9 || i.By != ByGain {
+		t.Errorf("by its own gain: %+v", i)
+	}
+	// As a p-channel part the same.
+	p := NewResult()
+	p.VgsIdle, p.Beta, p.Top = Quantity{Value: -c.VgsIdle.Value}, c.Beta, Level{I: 0.3, Vg: -gate(0.3)}
+	for _, l := range c.Levels {
+		p.Levels = append(p.Levels, Level{I: l.I, Vg: -l.Vg})
+	}
+	if i := p.CurrentBeyond(-gate(0.4), 0.25, math.NaN(), true); i.Beyond != 1 || math.Abs(i.I-0.4) > 1e-9 {
+		t.Errorf("p-channel: %+v", i)
+	}
+	// Close to the last level the highest point would add only its noise.
+	c.Top = Level{I: 0.26, Vg: gate(0.25) + 1e-6}
+	if i := c.CurrentAt(gate(0.255), 0.25, math.NaN(), false); i.Beyond != 1 || math.Abs(i.I-0.25) > 1e-9 {
+		t.Errorf("close to the last level: %+v", i)
+	}
+}

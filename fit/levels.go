@@ -21,6 +21,17 @@ func (w *work) levels() []Level {
 	return out
 }
 
+// highest is the highest point of a sweep of several, as it was read.
+func (w *work) highest() Level {
+	var out Level
+	for i := range w.pts {
+		if p := &w.pts[i]; len(w.pts) > 1 && p.above() && p.i > out.I {
+			out = Level{I: p.i, Vg: w.sign * p.vg, U: p.ux}
+		}
+	}
+	return out
+}
+
 // level is the gate voltage at current i: along the fitted model where there is one,
 // corrected by the residuals of the points on either side, else straight in the root
 // of the current; NaN where the sweep does not pass it.

@@ -225,7 +225,7 @@ func (w *work) extrapolated(r *Result) {
 		r.VtBy[method] = t
 		r.Vt, r.Beta, r.Theta, r.Method = t.Vt, t.Beta, t.Theta, method
 	}
-	r.Levels = w.levels()
+	r.Levels, r.Top = w.levels(), w.highest()
 	if w.s.Circuit == NoCircuit {
 		w.warn(CodeNoCircuit, "The circuit is not given: constant-current values only.")
 		return

@@ -105,13 +105,14 @@ type Result struct {
 	Returned  bool                 // a reading taken again after the sweep was compared with it: heating was looked for
 	Crossings int                  // upward crossings of the test current
 	Levels    []Level              // the curve itself: gate voltages at the currents of [LevelCurrents] inside the sweep, ascending by current
+	Top       Level                // its highest point; I 0: there is no curve
 	LeftOut   []LeftOut            // ascending by Index
 	Warnings  []Warning
 }
 
 // Level is the gate voltage at which a device carries one current.
 type Level struct {
-	I  float64 // A, magnitude, one of [LevelCurrents]
+	I  float64 // A, magnitude, one of [LevelCurrents], but for the highest point of a curve
 	Vg float64 // V, with the device's own sign
 	U  float64 // V, standard uncertainty within the session; NaN: not known
 }

@@ -200,6 +200,7 @@ func biasTrimDocOf(t *bias.Trim) *biasTrimDoc {
 type biasOnDoc struct {
 	Device string `json:"device"`
 	I      number `json:"idle_A"`
+	Below  number `json:"less_than_A"`
 	Power  number `json:"power_W"`
 	Temp   number `json:"temperature_C"`
 }
@@ -232,7 +233,7 @@ func biasLineDocOf(b *Bias, l *bias.Line) *biasLineDoc {
 		}
 		if s.Err != nil {
 			n := notHad
-			return &biasStateDoc{n, n, n, []biasOnDoc{}, optional(stateTrouble(l, s.Err))}
+			return &biasStateDoc{n, n, n, []biasOnDoc{}, optional(stateTrouble(s.Err))}
 		}
 		d := &biasStateDoc{Gate: number(s.Gate), Total: number(s.Total), Trimmer: notHad}
 		if n := b.Plan.Network; n != nil {
@@ -241,7 +242,11 @@ func biasLineDocOf(b *Bias, l *bias.Line) *biasLineDoc {
 			}
 		}
 		for k, q := range s.Devices {
-			d.Devices = append(d.Devices, biasOnDoc{l.Names[k], number(q.I), number(q.Power), number(q.Temp)})
+			on := biasOnDoc{l.Names[k], number(q.Told.I), notHad, number(q.Power), number(q.Temp)}
+			if q.Told.Beyond < 0 {
+				on.I, on.Below = notHad, number(q.Told.I)
+			}
+			d.Devices = append(d.Devices, on)
 		}
 		return d
 	}
@@ -300,7 +305,7 @@ func BiasJSON(w io.Writer, b Bias) error {
 		member{"n", p.N}, member{"above", p.Above}, member{"sd_V", number(p.SD)},
 		member{"tolerance_interval", biasBandDocOf(&p.Band)}, member{"temperature", biasThermalDocOf(&p.Thermal)},
 		member{"covered", covered}, member{"covered_by_every_board", always}, member{"network", biasNowDocOf(p.Now)},
-		member{"choices", choices}, member{"trimmer", biasTrimDocOf(p.Trim)}, member{"bins", bins}, member{"devices", devices},
+		member{"choices", choices}, member{"trimmer_for_lot", biasTrimDocOf(p.Trim)}, member{"bins", bins}, member{"devices", devices},
 		member{"extremes_on_one_line", biasLineDocOf(&b, b.Extremes)}, member{"lines", lines}, member{"against", change}, member{"ways", list(p.Ways())},
 		member{"warnings", append([]fit.Warning{}, b.Warnings...)})
 }

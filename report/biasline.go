@@ -4,9 +4,11 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"gatesill/fit/bias"
+	"gatesill/store/record"
 )
 
 // lineTable writes devices on one gate line: their gate voltage, and what each draws
@@ -25,7 +27,7 @@ func lineTable(p *printer, b Bias, l *bias.Line, style Style) {
 		if l.Kept.Err == nil && l.Kept.Devices != nil {
 			fact(p, "gate kept", fmt.Sprintf("left at %s it would draw %s when warm", gateWords(l.Kept.Gate), bias.AmpWords(l.Kept.Total)), style)
 		} else if l.Kept.Err != nil && l.Cold.Err == nil {
-			fact(p, "gate kept", fmt.Sprintf("left at %s: %s", gateWords(l.Cold.Gate), stateTrouble(l, l.Kept.Err)), style)
+			fact(p, "gate kept", fmt.Sprintf("left at %s: %s", gateWords(l.Cold.Gate), stateTrouble(l.Kept.Err)), style)
 		}
 	} else {
 		var missing []string
@@ -59,8 +61,6 @@ func lineTable(p *printer, b Bias, l *bias.Line, style Style) {
 	wrapped(p, "", "", "Currents by "+strings.Join(by, " or ")+", taken at the V_DS of the readings.", style.Width)
 }
 
-func gateWords(v float64) string { return withDigits(v, 0.02) }
-
 func ratioWords(x float64) string {
 	if !isNumber(x) || x > 1e4 {
 		return "no end"
@@ -69,10 +69,12 @@ func ratioWords(x float64) string {
 }
 
 // stateTrouble says why a state has no operating point.
-func stateTrouble(l *bias.Line, err error) string {
+func stateTrouble(err error) string {
 	switch {
+	case err == nil:
+		return ""
 	case errors.Is(err, bias.ErrRunaway):
-		return "no stable operating point, heating outruns the source resistors"
+		return "no stable operating point, the devices heat up faster than the circuit holds them (larger source resistors or better cooling would)"
 	case errors.Is(err, bias.ErrBeyond):
 		return "a device would carry more than its sweep reaches"
 	}
@@ -83,7 +85,7 @@ func stateTrouble(l *bias.Line, err error) string {
 // dissipation, and where the trimmer of the network has to be.
 func stateFact(p *printer, b Bias, label, how string, l *bias.Line, s *bias.State, style Style) {
 	if s.Err != nil {
-		fact(p, label, how+": "+stateTrouble(l, s.Err), style)
+		fact(p, label, how+": "+stateTrouble(s.Err), style)
 		return
 	}
 	words := fmt.Sprintf("%s: gate at %s", how, gateWords(s.Gate))
@@ -100,8 +102,28 @@ func stateFact(p *printer, b Bias, label, how string, l *bias.Line, s *bias.Stat
 		if q.Temp != l.Temp {
 			words += fmt.Sprintf(" at %.0f °C", q.Temp)
 		}
+		words += overLimits(b.Sheet, s)
 	}
 	fact(p, label, words, style)
+}
+
+// overLimits says which limits of the part a line goes beyond.
+func overLimits(sheet *Sheet, s *bias.State) string {
+	text := ""
+	for _, m := range []struct {
+		limit record.Num
+		unit  string
+		of    func(d bias.On) float64
+	}{
+		{sheet.Part.MaxPD, "W", func(d bias.On) float64 { return d.Power }}, {sheet.Part.MaxID, "A", func(d bias.On) float64 { return d.I }},
+		{sheet.Part.MaxTemp, "°C", func(d bias.On) float64 { return d.Temp }},
+	} {
+		limit, ok := m.limit.Get()
+		if ok && slices.ContainsFunc(s.Devices, func(d bias.On) bool { return m.of(d) > limit }) {
+			text += ", beyond the part's limit of " + FormatGiven(limit, m.unit)
+		}
+	}
+	return text
 }
 
 func lineGrid(l *bias.Line, style Style) grid {
@@ -117,7 +139,7 @@ func lineGrid(l *bias.Line, style Style) grid {
 		}
 		var i, w, t []string
 		for _, d := range s.Devices {
-			i = append(i, bias.AmpWords(d.I))
+			i = append(i, drawnCell(d.Told))
 			if isNumber(d.Power) {
 				w = append(w, FormatTwoDigits(d.Power, "W"))
 			}
@@ -143,4 +165,32 @@ func cleanAll(names []string) []string {
 		out[i] = Clean(n)
 	}
 	return out
+}
+
+// biasSheetGrid is one row a unit: its devices, the common gate voltage cold, what they
+// draw, and where the trimmer has to be.
+func biasSheetGrid(b Bias, style Style) grid {
+	cols := []column{{head: "unit", right: true}, {head: "devices", wrap: 24}, {head: "gate", unit: "V", right: true}, {head: "idle, each"}, {head: "trimmer", right: true, rank: 1}}
+	for k, l := range b.Lines {
+		gate, idle, setting := NotAvailable, stateTrouble(l.Cold.Err), ""
+		if l.Cold.Err == nil {
+			gate = fmt.Sprintf("%.3f", l.Cold.Gate)
+			var each []string
+			for _, d := range l.Cold.Devices {
+				each = append(each, drawnCell(d.Told))
+			}
+			idle = strings.Join(each, ", ")
+			if n := b.Plan.Network; n != nil {
+				if x := n.Setting(l.Cold.Gate); x >= 0 && x <= 1 {
+					setting = settingCell(x, b.Plan.Turns)
+				} else if n.Trimmer > 0 {
+					setting = "out of reach"
+				}
+			}
+		}
+		for i, cell := range []string{itoa(k + 1), strings.Join(cleanAll(l.Names), ", "), gate, idle, setting} {
+			cols[i].cells = append(cols[i].cells, cell)
+		}
+	}
+	return grid{style: style, cols: cols}
 }

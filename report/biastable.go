@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 	"strings"
 
 	"gatesill/fit"
@@ -42,16 +43,21 @@ func biasTable(p *printer, b Bias, style Style) {
 			p.line("")
 			lineTable(p, b, l, style)
 		}
+		if len(b.Lines) > 1 {
+			p.line("")
+			p.line("%s", style.paint("Bias sheet", bold))
+			p.grid(biasSheetGrid(b, style))
+		}
 		biasNotes(p, b, style)
 		return
 	}
 	p.line("")
-	fact(p, "centre", centreFact(pl), style)
+	fact(p, "centre", centreFact(b), style)
 	fact(p, "band", bandFact(&pl.Band), style)
 	thermalFacts(p, &pl.Thermal, style)
 	if l := b.Extremes; l != nil && l.Cold.Err == nil {
 		fact(p, "on one line", fmt.Sprintf("%s and %s, the devices at the ends, share %s as %s and %s (%s)", Clean(l.Names[0]), Clean(l.Names[1]),
-			FormatGiven(l.LineOptions.Total, "A"), bias.AmpWords(l.Cold.Devices[0].I), bias.AmpWords(l.Cold.Devices[1].I), sourceWords(l.Source)), style)
+			FormatGiven(l.LineOptions.Total, "A"), bias.DrawnWords(l.Cold.Devices[0].Told), bias.DrawnWords(l.Cold.Devices[1].Told), sourceWords(l.Source)), style)
 	}
 	if pl.Network != nil {
 		p.line("")
@@ -79,12 +85,12 @@ func biasTable(p *printer, b Bias, style Style) {
 	}
 	if len(pl.Choices) > 0 {
 		p.line("")
-		p.line("%s", style.paint("Resistors for the centre", bold))
+		p.line("%s", style.paint("Resistors for the centre"+middleWords(pl), bold))
 		p.grid(choiceGrid(pl, style))
 	}
 	if len(pl.Bins) > 0 {
 		p.line("")
-		p.line("%s", style.paint("One resistor a bin", bold))
+		p.line("%s", style.paint("One resistor a bin, of "+string(pl.Bins[0].Series)+middleWords(pl), bold))
 		p.grid(biasBinGrid(pl, style))
 	}
 	p.line("")
@@ -92,7 +98,16 @@ func biasTable(p *printer, b Bias, style Style) {
 	biasNotes(p, b, style)
 }
 
-func centreFact(pl *bias.Plan) string {
+// middleWords says what a trimmer is taken for.
+func middleWords(pl *bias.Plan) string {
+	if pl.Network != nil && pl.Network.Trimmer > 0 {
+		return ", the trimmer in its middle"
+	}
+	return ""
+}
+
+func centreFact(b Bias) string {
+	pl := b.Plan
 	if !isNumber(pl.Centre) {
 		return "none: half of the devices never reach the current"
 	}
@@ -100,8 +115,17 @@ func centreFact(pl *bias.Plan) string {
 	if isNumber(pl.SD) {
 		text += ", sd " + FormatTwoDigits(pl.SD, "V")
 	}
+	flagged := 0
+	for _, v := range b.Sheet.Verdicts() {
+		if v.Flagged && slices.ContainsFunc(pl.Units, func(u bias.Unit) bool { return u.Name == v.Name && u.Counts && u.Gate.Ok() }) {
+			flagged++
+		}
+	}
+	if flagged > 0 {
+		text += fmt.Sprintf("; %d of them flagged (gatesill spread says why)", flagged)
+	}
 	if pl.Above > 0 {
-		text += fmt.Sprintf("; %s more never reach the current", count(pl.Above, "device"))
+		text += fmt.Sprintf("; %d more above, not reaching the current", pl.Above)
 	}
 	return text
 }
@@ -110,8 +134,7 @@ func bandFact(t *lot.ToleranceBand) string {
 	if t.Declined != "" {
 		return "no interval for the lot: " + Clean(t.Declined)
 	}
-	u := (t.High - t.Low) / 10
-	text := fmt.Sprintf("%s to %s hold %s of %s with %s confidence", withDigits(t.Low, u), withDigits(t.High, u), LevelWords(t.Share), Clean(t.Of), LevelWords(t.Level))
+	text := fmt.Sprintf("%s hold %s of %s with %s confidence", rangeVolts(bias.Range{Low: t.Low, High: t.High}), LevelWords(t.Share), Clean(t.Of), LevelWords(t.Level))
 	if t.Kind == lot.BandNormal {
 		return text + fmt.Sprintf(" (mean ± %s sd, n = %d)", factor(t.Factor), t.N)
 	}
@@ -140,7 +163,7 @@ func thermalFacts(p *printer, t *bias.Thermal, style Style) {
 		words += fmt.Sprintf("; at a constant gate voltage the idle current changes by %s %%/K", signed(fmt.Sprintf("%.2g", 100*t.Rate)))
 	}
 	if isNumber(t.Typical) {
-		words += fmt.Sprintf("; typical at an overdrive of %s: %s (%s to %s; common practice, only shown)", FormatTwoDigits(t.Overdrive, "V"), slopeWords(t.Typical), slopeWords(t.TypicalLow), slopeWords(t.TypicalHigh))
+		words += fmt.Sprintf("; typical at an overdrive of %s: %s (%.1f to %.1f; common practice, only shown)", FormatTwoDigits(t.Overdrive, "V"), slopeWords(t.Typical), 1e3*t.TypicalLow, 1e3*t.TypicalHigh)
 	}
 	fact(p, "temperature", words, style)
 	if isNumber(t.ZeroGate) {
@@ -153,28 +176,33 @@ func thermalFacts(p *printer, t *bias.Thermal, style Style) {
 			from = "that slope and an α of 1.7, typical"
 		}
 		fact(p, "zero point", fmt.Sprintf("about %s at %s, where the current does not change with temperature (overdrive 2κT/α; %s); the idle current lies %s",
-			FormatTwoDigits(t.ZeroCurrent, "A"), withDigits(t.ZeroGate, 0.3), from, side), style)
+			FormatTwoDigits(t.ZeroCurrent, "A"), fmt.Sprintf("%.1f V", t.ZeroGate), from, side), style)
 	}
 }
 
 func sourceWords(ohm float64) string {
 	if ohm > 0 {
-		return FormatGiven(ohm, "Ω") + " in each source"
+		return bias.Ohms(ohm) + " in each source"
 	}
 	return "no source resistors"
 }
 
-func rangeVolts(r bias.Range) string {
-	u := math.Max(1e-3, (r.High-r.Low)/10)
-	return withDigits(r.Low, u) + " to " + withDigits(r.High, u)
+// gateWords writes a gate voltage that was worked out.
+func gateWords(v float64) string {
+	if !isNumber(v) {
+		return NotAvailable
+	}
+	return fmt.Sprintf("%.3f V", v)
 }
+
+func rangeVolts(r bias.Range) string { return fmt.Sprintf("%.3f to %.3f V", r.Low, r.High) }
 
 // nowFacts says what the network gives and whom it serves.
 func nowFacts(p *printer, b Bias, style Style) {
-	pl, n := b.Plan, b.Plan.Now
-	at := "gate voltage " + withDigits(n.Middle, 0.02)
+	n := b.Plan.Now
+	at := "gate voltage " + gateWords(n.Middle)
 	if n.Trimmed {
-		at = "the trimmer reaches " + rangeVolts(n.Reach) + "; in its middle " + withDigits(n.Middle, 0.02)
+		at = "the trimmer reaches " + rangeVolts(n.Reach) + "; in its middle " + gateWords(n.Middle)
 		if n.Given {
 			at = "the trimmer reaches " + rangeVolts(n.Reach) + ", as given"
 		}
@@ -187,11 +215,11 @@ func nowFacts(p *printer, b Bias, style Style) {
 		}
 		fact(p, "tolerances", fmt.Sprintf("%s at worst, ± %s as root-sum-square (%s)", rangeVolts(n.Tolerated), FormatTwoDigits(n.RSS, "V"), strings.Join(parts, ", ")), style)
 		if n.Trimmed {
-			words := rangeVolts(n.Sure)
+			words := "reaches " + rangeVolts(n.Sure) + ", whatever its supply and resistors within their tolerances"
 			if n.Sure.Low > n.Sure.High {
-				words = "no range"
+				words = "no gate voltage is reached by all, with supply and resistors anywhere in their tolerances"
 			}
-			fact(p, "every board", "reaches "+words+", whatever its supply and resistors within their tolerances", style)
+			fact(p, "every board", words, style)
 		}
 	}
 	if n.CoveredBy != "" {
@@ -225,15 +253,11 @@ func nowFacts(p *printer, b Bias, style Style) {
 		fact(p, "idle current", words, style)
 	}
 	if isNumber(n.Share) && len(n.Parts) > 0 {
-		words := fmt.Sprintf("the tolerances make %.0f %% of the variance, the devices the rest", 100*n.Share)
+		words := fmt.Sprintf("the tolerances make %.0f %% of the variance (each taken as evenly spread), the devices the rest", 100*n.Share)
 		if n.Dominant != "" {
-			words += fmt.Sprintf("; the %s dominate%s: sorting gains little until that is better", n.Dominant, map[bool]string{true: "s"}[n.Dominant == "supply"])
+			words += fmt.Sprintf("; they dominate, the %s most of all, and sorting does not mend that", n.Dominant)
 		}
 		fact(p, "share", words, style)
-	}
-	if t := pl.Trim; t != nil && t.Found {
-		fact(p, "re-centred", fmt.Sprintf("for %s: trimmer %s, top %s, bottom %s; used from %s to %s of its travel", rangeVolts(t.Wanted), FormatGiven(t.Network.Trimmer, "Ω"),
-			FormatGiven(t.Network.Top, "Ω"), FormatGiven(t.Network.Bottom, "Ω"), travel(t.From), travel(t.To)), style)
 	}
 }
 
@@ -307,15 +331,16 @@ func biasBinGrid(pl *bias.Plan, style Style) grid {
 }
 
 // unitGrid is the sheet of the devices: gate voltage of each, what it draws with the
-// network as it is, where its trimmer has to be.
+// network as it is, where its trimmer has to be, and in one word why something is missing.
 func unitGrid(b Bias, style Style) grid {
 	pl := b.Plan
 	var names, notes, draws, settings []string
 	var values, us []float64
+	note := b.UnitNotes()
 	for i := range pl.Units {
 		u := &pl.Units[i]
 		names, values, us = append(names, Clean(u.Name)), append(values, u.Gate.Value), append(us, u.Gate.U)
-		notes = append(notes, b.UnitNote(u))
+		notes = append(notes, note(u))
 		draw, setting := "", ""
 		if pl.Now != nil && u.Gate.Ok() {
 			draw = drawnCell(u.At)
@@ -334,7 +359,9 @@ func unitGrid(b Bias, style Style) grid {
 		g.cols = append(g.cols, column{head: "idle at " + fmt.Sprintf("%.3f V", n.Middle), cells: draws, right: true, rank: 1},
 			column{head: "trimmer", cells: settings, right: true, rank: 2})
 	}
-	g.cols = append(g.cols, column{head: "note", cells: notes, rank: 3, wrap: 30})
+	if note := (column{head: "note", cells: notes}); !note.empty() {
+		g.cols = append(g.cols, note)
+	}
 	return g
 }
 

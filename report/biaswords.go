@@ -3,9 +3,11 @@ package report
 import (
 	"fmt"
 	"io"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/bias"
+	"gatesill/store/record"
 )
 
 // Facts are what is said of the bias of the lot, with their labels, as they stand
@@ -41,10 +43,10 @@ func (b *Bias) TakenForGranted() []string {
 		if b.AssumedTrimmer && (n.Trimmer > 0 || b.Plan.Trim != nil) {
 			notes = append(notes, fmt.Sprintf("A trimmer's value is taken as ± %.0f %% (common practice; --trimmer-tol says another).", 100*n.TrimTol))
 		}
-		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones.")
+		notes = append(notes, "Nothing is taken to flow into the gate. Tolerances at worst: every one at its end; root-sum-square: independent ones. Everything holds at the V_DS of the readings.")
 	}
 	if b.Plan.Now != nil && b.Plan.Now.Trimmed && len(b.Lines) == 0 {
-		notes = append(notes, "trimmer: part of its travel from the end with the least gate voltage, everything else nominal.")
+		notes = append(notes, "trimmer: part of its travel from the end with the gate voltage nearest to 0 V, everything else nominal.")
 	}
 	if t := b.Plan.Thermal; t.Assumed && (isNumber(t.ZeroGate) || len(b.Lines) > 0) {
 		notes = append(notes, "The temperature of the lot is not known: 25 °C is taken.")
@@ -52,12 +54,30 @@ func (b *Bias) TakenForGranted() []string {
 	return notes
 }
 
-// UnitNote is what is to be said of a device in the bias sheet; "": nothing.
-func (b *Bias) UnitNote(u *bias.Unit) string {
-	if n := b.Plan.Now; n != nil && n.CoveredBy != "" && u.Gate.Ok() && !u.Covered && u.Counts {
-		return "outside"
+// UnitNotes gives what is to be said of a device in the bias sheet; "": nothing.
+func (b *Bias) UnitNotes() func(u *bias.Unit) string {
+	states, flagged := map[string]string{}, b.Sheet.Verdicts()
+	for _, d := range b.Sheet.Devices {
+		if states[d.Name] = WordsOf(d.State()).Word; d.State() == fit.Measured {
+			states[d.Name] = "no value"
+		}
+		if d.Role == record.Control {
+			states[d.Name] = "control part"
+		}
 	}
-	return Clean(u.Why)
+	return func(u *bias.Unit) string {
+		note := ""
+		if u.Why != "" {
+			note = states[u.Name]
+		}
+		if n := b.Plan.Now; n != nil && n.CoveredBy != "" && u.Gate.Ok() && !u.Covered && u.Counts {
+			note = "outside"
+		}
+		if u.Gate.Ok() && flagged[u.Name].Flagged {
+			note = strings.TrimPrefix(note+", flagged", ", ")
+		}
+		return note
+	}
 }
 
 // DrawnWords writes a current in a table: "> 1.2 A" where it is more than a curve

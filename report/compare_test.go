@@ -38,7 +38,7 @@ func comparedLots(n int) report.ComparedLots {
 				Centre:    [2]float64{3.0427, 3.1879}, SD: [2]float64{0.0620, 0.0710},
 				Common: compare.Common{U: 0.0042, Basis: "sessions of one bench", Controls: 2, Offset: 0.013, OffsetU: 0.002},
 				Paired: &compare.Paired{Pairs: 12, Why: "the serials stand in both lots and their values go together (r = 0.98)", OnlyRef: []string{"D1", "D2"}, SD: 0.0015},
-				Curves: &compare.Band{Level: 0.95, Differs: true, Text: "the lots differ from 1 mA to 500 mA, by 130 to 170 mV"},
+				Curves: &compare.Band{Level: 0.95, Changes: true, Differs: true, Text: "the lots differ from 1 mA to 500 mA, by 130 to 170 mV"},
 				Gain:   &compare.Gain{Key: fit.KeyBeta, Percent: compare.Interval{Value: -3.1, Low: -7.2, High: 1.2}, P: 0.16, N: [2]int{30, 29}, Adjusted: true},
 				Options: []compare.Option{
 					{Name: "re-adjust", Text: "the gate bias of 3.042 V gives 90 mA instead of 250 mA; set anew, 3.188 V gives 250 mA"},
@@ -79,7 +79,7 @@ func hostile(c *report.ComparedLots, bad string) {
 	for i := range c.Candidates {
 		s := &c.Candidates[i]
 		q := s.Compared
-		s.Lot.Name, q.MarginFrom, q.Reference.Lot.Name, q.Candidate, q.Test, q.Sentence, q.MoreText, q.SpreadTest = bad, bad, bad, bad, bad, bad, bad, bad
+		s.Lot.Name, q.MarginFrom, q.Reference.Lot.Name, q.Candidate, q.Test, q.Sentence, q.MoreText, q.SpreadTest, q.Beside = bad, bad, bad, bad, bad, bad, bad, bad, bad
 		q.Secondary[0].Test, q.Common.Basis, q.Paired.Why, q.Paired.OnlyRef, q.Curves.Text, q.Gain.Text = bad, bad, bad, []string{bad}, bad, bad
 		q.Options[0] = compare.Option{Name: bad, Text: bad, Rule: bad}
 		q.Warnings = []fit.Warning{{Code: bad, Text: bad}}
@@ -138,4 +138,39 @@ func TestShiftWords(t *testing.T) {
 	require.Equal(t, "p = 9.9e-04", report.PWords(0.00099))
 	require.Equal(t, "p = 0.034", report.PWords(0.0342))
 	check(0.145, math.NaN(), math.NaN(), "+145 mV")
+}
+
+// What says nothing is left out: a band that is parallel, a rule that is not stored, an
+// error that a warning names. What counts stands with the verdict.
+func TestCompareTableSaysNoEmptyThing(t *testing.T) {
+	write := func(change func(c *report.Compared)) string {
+		cl := comparedLots(1)
+		s := &cl.Candidates[0]
+		c := *s.Compared
+		change(&c)
+		s.Compared = &c
+		cl.Candidates, cl.Trend = cl.Candidates[:1], nil
+		var b strings.Builder
+		if err := report.CompareTable(&b, cl, report.Style{}); err != nil {
+			t.Fatal(err)
+		}
+		return b.String()
+	}
+	all := write(func(c *report.Compared) { c.Beside = "beside it nothing is seen" })
+	for _, want := range []string{"band of all", "send back:", "common error", "Beside it nothing is seen."} {
+		if !strings.Contains(all, want) {
+			t.Errorf("%q is not in %s", want, all)
+		}
+	}
+	less := write(func(c *report.Compared) {
+		band := *c.Curves
+		band.Changes = false
+		c.Curves, c.Options, c.Common = &band, []compare.Option{{Name: compare.SendBack, Text: "no stored rule asks for it"}}, compare.Common{U: math.NaN(), OffsetU: math.NaN()}
+		c.Warnings = []fit.Warning{{Code: fit.CodeCommonUnknown, Text: "not known"}}
+	})
+	for _, not := range []string{"band of all", "send back:", "common error "} {
+		if strings.Contains(less, not) {
+			t.Errorf("%q is in %s", not, less)
+		}
+	}
 }

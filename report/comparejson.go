@@ -47,6 +47,8 @@ type secondaryDoc struct {
 	P         number      `json:"p"`
 	PAdjusted number      `json:"p_adjusted"`
 	Shift     intervalDoc `json:"shift_V"` // nulls: the test has none
+	// Ratio is that of the variances, candidate over reference; absent: the test has none.
+	Ratio *intervalDoc `json:"variance_ratio,omitempty"`
 }
 
 type optionDoc struct {
@@ -116,7 +118,12 @@ func compareMembers(s *Sheet) []member {
 	counts := func(k compare.Counts) countsDoc { return countsDoc(k) }
 	secondary, options := []secondaryDoc{}, []optionDoc{}
 	for _, t := range c.Secondary {
-		secondary = append(secondary, secondaryDoc{t.Test, number(t.Statistic), number(t.P), number(t.PAdjusted), intervalDocOf(t.Shift)})
+		doc := secondaryDoc{Test: t.Test, Statistic: number(t.Statistic), P: number(t.P), PAdjusted: number(t.PAdjusted), Shift: intervalDocOf(t.Shift)}
+		if t.Ratio != (compare.Interval{}) {
+			ratio := intervalDocOf(t.Ratio)
+			doc.Ratio = &ratio
+		}
+		secondary = append(secondary, doc)
 	}
 	for _, o := range c.Options {
 		options = append(options, optionDoc{o.Name, o.Text, optional(o.Rule)})
@@ -135,7 +142,7 @@ func compareMembers(s *Sheet) []member {
 		{"counts", map[string]countsDoc{"reference": counts(c.Counts[0]), "candidate": counts(c.Counts[1])}},
 		{"options", options},
 
-		{"sentence", c.Sentence}, {"p", number(c.P)}, {"df", number(c.DF)}, {"raw_shift_V", number(c.Raw)}, {"taken_off_for_temperature_V", number(c.ForTemp)}, {"margin_from", optional(c.MarginFrom)}, {"more_parts_why", optional(c.MoreText)},
+		{"sentence", c.Sentence}, {"p", number(c.P)}, {"df", number(c.DF)}, {"raw_shift_V", number(c.Raw)}, {"taken_off_for_temperature_V", number(c.ForTemp)}, {"taken_off_for_temperature_u_V", number(c.TempU)}, {"margin_from", optional(c.MarginFrom)}, {"more_parts_why", optional(c.MoreText)}, {"which_counts", optional(c.Beside)},
 		{"centre_V", pairDoc{number(c.Centre[0]), number(c.Centre[1])}}, {"sd_V", pairDoc{number(c.SD[0]), number(c.SD[1])}}, {"spread_test", optional(c.SpreadTest)},
 		{"common_error", commonDoc{number(c.Common.U), optional(c.Common.Basis), c.Common.Controls, number(c.Common.Offset), number(c.Common.OffsetU)}},
 		{"paired", pairedDocOf(c.Paired)}, {"curves", bandDocOf(c.Curves)}, {"gain", gainDocOf(c.Gain)},

@@ -27,7 +27,15 @@ func CompareTable(w io.Writer, c ComparedLots, style Style) error {
 	ofAll := c.saidOfAll()
 	for i := range c.Candidates {
 		p.line("")
+		if c.Trend != nil {
+			oneOfSeveral(p, &c.Candidates[i], ofAll, style)
+			continue
+		}
 		comparedLot(p, &c.Candidates[i], ofAll, style)
+	}
+	if c.Trend != nil {
+		p.line("")
+		p.line("More of a lot is told where it alone is compared.")
 	}
 	if len(ofAll) > 0 {
 		p.line("")
@@ -73,14 +81,44 @@ func fact(p *printer, label, words string, style Style) {
 	wrapped(p, head, strings.Repeat(" ", labelWidth), words, style.Width)
 }
 
-// comparedLot writes one comparison, warnings that hold for all of them left out.
-func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
-	c := s.Compared
+// headline writes the verdict with its sentence and, where something beside it says
+// otherwise, which counts.
+func headline(p *printer, c *Compared, style Style) {
 	sgr := bold
 	if c.No() {
 		sgr = red
 	}
 	wrapped(p, style.paint(fmt.Sprintf("%s against %s: %s.", Clean(c.Candidate), Clean(c.Reference.Lot.Name), c.Verdict), sgr)+" ", "  ", Clean(Sentence(c.Reason())), style.Width)
+	if c.Beside != "" {
+		wrapped(p, "  ", "  ", Clean(Sentence(c.Beside)), style.Width)
+	}
+}
+
+// ownWarnings writes the warnings that do not hold for all lots.
+func ownWarnings(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
+	own := slices.DeleteFunc(slices.Clone(s.Compared.Warnings), func(w fit.Warning) bool { return slices.Contains(ofAll, w) })
+	if len(own) > 0 {
+		p.line("")
+		lotWarnings(p, *s, own, style)
+	}
+}
+
+// oneOfSeveral is what a lot among several gets beside its line in the table: the
+// sentence of its verdict, a stored rule, and what is doubtful of it alone.
+func oneOfSeveral(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
+	headline(p, s.Compared, style)
+	for _, o := range s.Compared.Options {
+		if o.Rule != "" {
+			wrapped(p, "  "+Clean(o.Name)+": ", "    ", Clean(Sentence(o.Text)), style.Width)
+		}
+	}
+	ownWarnings(p, s, ofAll, style)
+}
+
+// comparedLot writes one comparison, warnings that hold for all of them left out.
+func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
+	c := s.Compared
+	headline(p, c, style)
 	p.line("")
 	p.grid(countsGrid(s, style))
 	p.line("")
@@ -92,7 +130,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	if isNumber(c.NotExcluded) && c.Verdict == compare.TooFew {
 		fact(p, "not excluded", "shifts up to "+FormatTwoDigits(c.NotExcluded, "V"), style)
 	}
-	if c.More > 0 || c.MoreText != "" {
+	if (c.More > 0 || c.MoreText != "") && !(c.MoreText != "" && strings.Contains(c.Sentence, c.MoreText)) {
 		words := Clean(c.MoreText)
 		if c.More > 0 && !strings.Contains(words, strconv.Itoa(c.More)) {
 			words = strings.TrimSpace(strconv.Itoa(c.More) + " devices a lot would tell. " + words)
@@ -101,7 +139,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	}
 	fact(p, "common error", commonFact(c), style)
 	if isNumber(c.Spread.Value) {
-		fact(p, "spread", "ratio of the standard deviations "+RatioWords(c.Spread)+orNothing(", by ", Clean(c.SpreadTest)), style)
+		fact(p, "spread", "ratio of the standard deviations "+RatioWords(c.Spread), style)
 	}
 	if c.Paired != nil {
 		fact(p, "pairs", pairedFact(c), style)
@@ -111,7 +149,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 	}
 	if c.Curves != nil {
 		fact(p, "curves", Clean(Sentence(c.Curves.Text)), style)
-		if len(c.Curves.Points) > 0 {
+		if len(c.Curves.Points) > 0 && (c.Curves.Changes || c.Curves.Differs && c.Verdict == compare.NoDifference && c.ForTemp == 0) {
 			p.line("")
 			p.grid(bandGrid(c.Curves, style))
 		}
@@ -122,11 +160,7 @@ func comparedLot(p *printer, s *Sheet, ofAll []fit.Warning, style Style) {
 		p.grid(secondaryGrid(c.Secondary, c.Level, style))
 	}
 	waysOn(p, s, style)
-	own := slices.DeleteFunc(slices.Clone(c.Warnings), func(w fit.Warning) bool { return slices.Contains(ofAll, w) })
-	if len(own) > 0 {
-		p.line("")
-		lotWarnings(p, *s, own, style)
-	}
+	ownWarnings(p, s, ofAll, style)
 }
 
 // waysOn writes the ways to go on; those that need the idle current only say so
@@ -140,6 +174,9 @@ func waysOn(p *printer, s *Sheet, style Style) {
 	p.line("%s", style.paint("Ways to go on", bold))
 	var need []string
 	for _, o := range c.Options {
+		if o.Name == compare.SendBack && o.Rule == "" {
+			continue // nothing asks for it
+		}
 		if !isNumber(c.Reference.IdleCurrent) && o.Name != compare.SortFirst && o.Name != compare.SendBack {
 			need = append(need, Clean(o.Name))
 			continue
@@ -152,7 +189,7 @@ func waysOn(p *printer, s *Sheet, style Style) {
 }
 
 func orNothing(lead, words string) string {
-	if words == "" {
+	if lead == "" || words == "" {
 		return ""
 	}
 	return lead + words
@@ -180,7 +217,7 @@ func rawFact(c *Compared) string {
 	}
 	text := ShiftWords(c.Raw, c.Raw+c.Low-c.Shift, c.Raw+c.High-c.Shift, "V")
 	if c.ForTemp != 0 {
-		text += "; taken off for the temperature: " + offsetWords(roundTo(c.ForTemp, 3), math.NaN())
+		text += "; taken off for the temperature: " + offsetWords(c.ForTemp, c.TempU)
 	}
 	return text
 }
@@ -189,6 +226,9 @@ func rawFact(c *Compared) string {
 func commonFact(c *Compared) string {
 	e := c.Common
 	text := "not known, so that it is not in the interval"
+	if slices.ContainsFunc(c.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown }) || !isNumber(e.U) && !isNumber(c.Shift) {
+		text = "" // said there, or there is no interval
+	}
 	switch {
 	case isNumber(e.U) && e.U == 0:
 		text = "none" + orNothing(": ", Clean(e.Basis))
@@ -196,7 +236,7 @@ func commonFact(c *Compared) string {
 		text = "± " + FormatTwoDigits(e.U, "V") + " shared by a whole lot, in the interval" + orNothing("; ", Clean(e.Basis))
 	}
 	if e.Controls > 0 {
-		text += fmt.Sprintf("; %s tie the lots together", count(e.Controls, "control part"))
+		text = orNothing(text, "; ") + fmt.Sprintf("%s tie the lots together", count(e.Controls, "control part"))
 		if e.Offset != 0 {
 			text += ", " + offsetWords(e.Offset, e.OffsetU) + " taken off"
 		}
@@ -257,7 +297,7 @@ func countsGrid(s *Sheet, style Style) grid {
 		sds[i] = sc.FormatNumber(sd, ses[i]/math.Sqrt2, 0) // that of a standard deviation: sd/√(2n)
 	}
 	g := grid{style: style, cols: []column{
-		{head: "lot", cells: names, wrap: 20}, {head: "centre", unit: unit, cells: centre}, {head: "sd", unit: sc.Unit("V"), cells: sds, right: true},
+		{head: "lot", cells: names, wrap: 20}, {head: centreHead(c), unit: unit, cells: centre}, {head: "sd", unit: sc.Unit("V"), cells: sds, right: true},
 	}}
 	valued, besides := make([]string, 2), make([]string, 2)
 	for i, k := range c.Counts {
@@ -280,6 +320,14 @@ func countsGrid(s *Sheet, style Style) grid {
 		g.cols = append(g.cols, column{head: "besides", cells: besides, wrap: 9})
 	}
 	return g
+}
+
+// centreHead says that centres are as read where the shift is not their difference.
+func centreHead(c *Compared) string {
+	if isNumber(c.Raw) {
+		return "centre as read"
+	}
+	return "centre"
 }
 
 func bandGrid(b *compare.Band, style Style) grid {

@@ -96,3 +96,36 @@ func TestGaugeJSON(t *testing.T) {
 		}
 	}
 }
+
+// Sessions in which nothing but a large drift would show are told of in one line.
+func TestGaugeBlindSessions(t *testing.T) {
+	r := rand.New(rand.NewPCG(20261201, 5))
+	s, g := inventedGauge()
+	var ms []gauge.Measuring
+	for k := range 4 {
+		for place, d := range r.Perm(10) {
+			ms = append(ms, gauge.Measuring{
+				Device: fmt.Sprint("D", d), Value: 3 + 0.03*float64(d), U: math.NaN(), Temp: math.NaN(),
+				Sitting: fmt.Sprint("session ", k), Occasion: fmt.Sprint("session ", k), Place: place + 1, Rank: len(ms) + 1,
+			})
+		}
+	}
+	g.Drifts = gauge.DriftsOf(ms, gauge.None())
+	blind := 0
+	for i := range g.Drifts {
+		if g.Drifts[i].Blind() && g.Drifts[i].First == nil {
+			blind++
+		}
+	}
+	if blind < 2 {
+		t.Fatalf("%d blind sessions of %d", blind, len(g.Drifts))
+	}
+	var out bytes.Buffer
+	if err := GaugeTable(&out, s, g, Style{}); err != nil {
+		t.Fatal(err)
+	}
+	text := out.String()
+	if !strings.Contains(text, fmt.Sprintf("  %d sessions: No drift seen", blind)) || strings.Count(text, "only a large one would show") != 1 || strings.Contains(text, "would show a large one only") {
+		t.Error(text)
+	}
+}

@@ -78,7 +78,12 @@ func gaugeWarnings(p *printer, s Sheet, list []fit.Warning, style Style) {
 // gaugeNone says what to measure where no device was put in twice.
 func gaugeNone(s Sheet, g Gauge) string {
 	text := "No device was put in twice in one session: how well the bench repeats is not known from this lot. Put 10 devices in three times each, in random order: gatesill gauge " +
-		Clean(quotedName(s.Lot.Name)) + " --rounds 3 writes one."
+		Clean(quotedName(s.Lot.Name)) + " --rounds 3 writes one. "
+	if len(g.History) > 0 {
+		text += "Rounds on several days do not count for that, each day is a session of its own: what days differ by would be taken for the bench's; the changes between them stand below."
+	} else {
+		text += "All rounds belong in one session: one day, one operator, one fixture; of files without dates those with the same import --session NAME."
+	}
 	if g.Used.Value > 0 {
 		text += fmt.Sprintf(" Used here: %s (%s).", FormatTwoDigits(g.Used.Value, "V"), Clean(g.Used.Basis))
 	}
@@ -254,9 +259,53 @@ func gaugeDrifts(p *printer, g Gauge, style Style) {
 	}
 	p.line("")
 	p.line("%s", style.paint("Drift along a session", bold))
+	gaugeBlind(p, g.Drifts, style)
 	for _, d := range g.Drifts {
+		if d.Blind() && d.First == nil && blindOnes(g.Drifts) > 1 {
+			continue
+		}
 		wrapped(p, "  "+Clean(d.Sitting)+": ", "    ", Clean(Sentence(d.Text)), style.Width)
 	}
+}
+
+// blindOnes counts the sessions that could show a large drift only, with nothing else
+// to say of them.
+func blindOnes(list []gauge.Drift) int {
+	n := 0
+	for i := range list {
+		if list[i].Blind() && list[i].First == nil {
+			n++
+		}
+	}
+	return n
+}
+
+// gaugeBlind says of all such sessions in one line what they could not show.
+func gaugeBlind(p *printer, list []gauge.Drift, style Style) {
+	n := blindOnes(list)
+	if n < 2 {
+		return
+	}
+	var names []string
+	low, high := math.Inf(1), 0.0
+	for i := range list {
+		if d := &list[i]; d.Blind() && d.First == nil {
+			names = append(names, d.Sitting)
+			if x := d.Large(); isNumber(x) {
+				low, high = min(low, x), max(high, x)
+			}
+		}
+	}
+	large := ""
+	if high > 0 {
+		large = " (of some " + FormatTwoDigits(low, "V")
+		if most := FormatTwoDigits(high, "V"); most != FormatTwoDigits(low, "V") {
+			large += " to " + most
+		}
+		large += ")"
+	}
+	wrapped(p, fmt.Sprintf("  %d sessions: ", n), "    ", fmt.Sprintf("No drift seen, but with each device measured once only a large one would show%s: put the first one in again at the end. (%s)",
+		large, namesWords(names, shownNames)), style.Width)
 }
 
 func gaugeCharts(p *printer, g Gauge, style Style) {
@@ -319,8 +368,8 @@ func gaugeHistory(p *printer, s *Sheet, h *gauge.History, style Style) {
 		wrapped(p, "", "  ", "Repeatability from the differences: "+FormatTwoDigits(h.FromDiffs, "V")+" (robust).", style.Width)
 	}
 	if isNumber(h.Limit) {
-		wrapped(p, "", "  ", fmt.Sprintf("A device changed when its own change is beyond %s, corrected for %d devices; for one alone 2·√2·sigma is %s (sigma %s: %s).",
-			FormatTwoDigits(h.Limit, "V"), len(h.Changes), FormatTwoDigits(h.LimitOne, "V"), FormatTwoDigits(h.Sigma, "V"), Clean(h.SigmaBasis)), style.Width)
+		wrapped(p, "", "  ", fmt.Sprintf("A device changed when its own change is beyond %s, corrected for %s; for one alone 2·√2·sigma is %s (sigma %s: %s).",
+			FormatTwoDigits(h.Limit, "V"), count(len(h.Changes), "device"), FormatTwoDigits(h.LimitOne, "V"), FormatTwoDigits(h.Sigma, "V"), Clean(h.SigmaBasis)), style.Width)
 	}
 	if names := h.ChangedDevices(); len(names) > 0 {
 		wrapped(p, "", "  ", style.paint("Changed or mixed up", red)+": "+namesWords(names, shownNames)+": check the serial, measure again.", style.Width)

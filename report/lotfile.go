@@ -113,6 +113,15 @@ func CodesTable(w io.Writer, codes []fit.CodeInfo, style Style) error {
 	return p.err
 }
 
+// Sentences writes sentences for people, one below the other.
+func Sentences(w io.Writer, list []string, style Style) error {
+	p := &printer{w: w}
+	for _, s := range list {
+		wrapped(p, "", "  ", Clean(Sentence(s)), style.Width)
+	}
+	return p.err
+}
+
 // CodesJSON writes every warning and flag code with its meaning.
 func CodesJSON(w io.Writer, codes []fit.CodeInfo) error {
 	type code struct {

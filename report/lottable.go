@@ -230,7 +230,7 @@ func changeWords(c record.Change) string {
 	case c.Field == "created":
 		text += c.What + " created"
 	default:
-		text += fmt.Sprintf("%s %s: %s -> %s", c.What, c.Field, quoted(c.Old), quoted(c.New))
+		text += fmt.Sprintf("%s %s: %s -> %s", c.What, c.Field, changedValue(c, c.Old), changedValue(c, c.New))
 	}
 	if c.Who != "" {
 		text += ", by " + c.Who
@@ -239,6 +239,17 @@ func changeWords(c record.Change) string {
 		text += ", because: " + c.Reason
 	}
 	return Clean(text)
+}
+
+// changedValue writes a value of the audit trail; amounts, which it has in base units,
+// as they are set.
+func changedValue(c record.Change, s string) string {
+	if c.What == "lot" && (c.Field == "margin" || c.Field == "guard") {
+		if a, err := record.ParseAmount(s, "V", "%", "A", "u"); err == nil && a.String() == s && s != "" {
+			return AmountWords(a)
+		}
+	}
+	return quoted(s)
 }
 
 func quoted(s string) string {

@@ -22,8 +22,11 @@ type Matched struct {
 	Cut     bool          // interrupted: better sets may be had
 	// SourceOhms is the resistor in each source, ohm; 0: none.
 	SourceOhms float64
-	Vds        float64 // V, for the dissipation; NaN: not known
-	VdsFrom    string  // where it comes from, in words
+	// TimeEnded: the search was ended by its time limit, so that another run may find,
+	// and number, other sets.
+	TimeEnded bool
+	Vds       float64 // V, for the dissipation; NaN: not known
+	VdsFrom   string  // where it comes from, in words
 }
 
 // Partners is the stock as partners for one device, ready to be laid out.

@@ -171,7 +171,7 @@ func MatchJSON(w io.Writer, m Matched) error {
 		member{"complementary", m.Complementary}, member{"source_resistor_ohm", number(m.SourceOhms)}, member{"vds_V", number(m.Vds)},
 		member{"sets", sets}, member{"left_over", left}, member{"left_over_why", why}, member{"near_misses", near}, member{"total_V", number(m.Total)}, member{"worst_V", number(m.Worst)},
 		member{"bound", boundDoc{optional(b.Kind), number(b.Total), number(b.Worst), b.Sets, number(b.Gap), optional(b.Proof)}},
-		member{"trade_off", trade}, member{"more", more}, member{"interrupted", m.Cut}, member{"text", m.Text}, member{"warnings", append([]fit.Warning{}, m.warnings()...)})
+		member{"trade_off", trade}, member{"more", more}, member{"interrupted", m.Cut}, member{"ended_by_time_limit", m.TimeEnded}, member{"text", m.Text}, member{"warnings", append([]fit.Warning{}, m.warnings()...)})
 }
 
 // at is the current matched at: of one device at idle, or that of V_GS(th).

@@ -116,12 +116,18 @@ func (m *Matched) tradeRows() []match.TradeOff {
 		own.Mean = own.Total / float64(own.Sets)
 	}
 	own.Left = m.Offered - own.Sets*m.Size
-	if m.Aim != match.Most || slices.ContainsFunc(rows, func(t match.TradeOff) bool { return math.Abs(t.Within-own.Within) < 1e-9 }) {
+	if m.Aim != match.Most || len(rows) == 0 {
 		return rows
 	}
 	i := 0
-	for i < len(rows) && rows[i].Within < own.Within {
+	for i < len(rows) && rows[i].Within < own.Within-1e-9 {
 		i++
+	}
+	if i < len(rows) && math.Abs(rows[i].Within-own.Within) <= 1e-9 {
+		if rows[i].Sets <= own.Sets { // the answer itself was searched for longer
+			rows[i] = own
+		}
+		return rows
 	}
 	return slices.Insert(rows, i, own)
 }

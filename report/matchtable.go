@@ -34,6 +34,9 @@ func MatchTable(w io.Writer, m Matched, style Style) error {
 		}
 		p.line("")
 		wrapped(p, "", "  ", m.boundWords(), style.Width)
+		if m.TimeEnded {
+			wrapped(p, "", "  ", "The search was ended by its time limit: another run may find and number other sets. --lock takes those of its own run, and shows them.", style.Width)
+		}
 		inPackages(p, &m, style)
 	}
 	repairs(p, &m, style)
@@ -66,7 +69,6 @@ func MatchTable(w io.Writer, m Matched, style Style) error {
 func setsGrid(m *Matched, style Style) grid {
 	n := len(m.Sets)
 	numbers, members, alike, within, hot := make([]string, n), make([]string, n), make([]string, n), make([]string, n), make([]string, n)
-	power := make([]float64, n)
 	imbalance, share := make([]float64, n), make([]float64, n)
 	claimed, powered, beyond := false, false, false
 	many := manyLots(m.Members)
@@ -78,19 +80,19 @@ func setsGrid(m *Matched, style Style) grid {
 		for _, d := range s.Devices {
 			words = append(words, deviceName(d.Lot, d.Name, many)+" "+values(d))
 		}
-		members[i] = strings.Join(words, ", ")
+		members[i] = listCell(words, style.Width)
 		alike[i] = alikeWord(s.Alike, s.Limit)
 		if !s.Within && m.hasTolerance() {
 			within[i], beyond = "beyond", true
 		}
-		imbalance[i], share[i], power[i] = s.Sharing.Imbalance, s.Sharing.Share, s.Sharing.Power
+		imbalance[i], share[i] = s.Sharing.Imbalance, s.Sharing.Share
 		claimed = claimed || isNumber(s.Sharing.Imbalance)
 		if h := s.Sharing.Hottest; h >= 0 && h < len(s.Devices) && isNumber(s.Sharing.Power) {
-			hot[i], powered = deviceName(s.Devices[h].Lot, s.Devices[h].Name, many), true
+			hot[i], powered = deviceName(s.Devices[h].Lot, s.Devices[h].Name, many)+" "+FormatTwoDigits(s.Sharing.Power, "W"), true
 		}
 	}
 	g := grid{style: style, cols: []column{
-		{head: "set", cells: numbers, right: len(m.Locked) == 0}, {head: "devices", unit: m.valueUnits(), cells: members, wrap: 24},
+		{head: "set", cells: numbers, right: len(m.Locked) == 0}, {head: "devices", unit: m.valueUnits(), cells: members},
 	}}
 	for c, crit := range m.By {
 		g.cols = append(g.cols, spreadColumn(m, c, crit))
@@ -99,14 +101,38 @@ func setsGrid(m *Matched, style Style) grid {
 		g.cols = append(g.cols, sizeColumn("imbalance", "A", imbalance), column{head: "of idle", unit: "%", cells: percents(share), right: true})
 	}
 	if powered {
-		c := sizeColumn("at most", "W", power)
-		g.cols = append(g.cols, column{head: "hottest", cells: hot, rank: 1}, c)
+		g.cols = append(g.cols, column{head: "hottest", cells: hot, rank: 1})
 	}
 	g.cols = append(g.cols, column{head: "alike", cells: alike})
 	if beyond {
 		g.cols = append(g.cols, column{head: "tolerance", cells: within})
 	}
 	return g
+}
+
+// besides is what the columns beside a list of devices take.
+const besides = 54
+
+// listCell joins words for a cell, broken between them where the terminal is narrow:
+// a value stays beside its device.
+func listCell(words []string, width int) string {
+	var b strings.Builder
+	used := 0
+	for i, word := range words {
+		n := displayWidth(word)
+		switch {
+		case i == 0:
+		case width > 0 && used+2+n > max(24, width-besides):
+			b.WriteString(",\n")
+			used = 0
+		default:
+			b.WriteString(", ")
+			used += 2
+		}
+		b.WriteString(word)
+		used += n
+	}
+	return b.String()
 }
 
 func alikeWord(alike bool, limit float64) string {
@@ -240,12 +266,12 @@ func (m *Matched) setsNote() string {
 	}
 	for _, s := range m.Sets {
 		if isNumber(s.Sharing.Imbalance) {
-			text += " imbalance: greatest less least current on one gate line that carries " + FormatGiven(m.At, "A") + " a device" + m.resistorWords() + "."
+			text += " imbalance: greatest less least current on one gate line that carries " + FormatGiven(m.At, "A") + " a device," + m.resistorWords() + "."
 			break
 		}
 	}
 	if isNumber(m.Vds) {
-		text += " hottest, at most: the device that carries most, and its power at " + FormatGiven(m.Vds, "V") + orNothing(", ", Clean(m.VdsFrom)) + "."
+		text += " hottest: the device that carries most, and its power at " + FormatGiven(m.Vds, "V") + orNothing(", ", Clean(m.VdsFrom)) + "."
 	}
 	return text + " alike: no two differ by more than 2·√2 standard uncertainties."
 }

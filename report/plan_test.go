@@ -112,3 +112,24 @@ func TestPlanCurve(t *testing.T) {
 	require.Equal(t, 11, rows)
 	require.Equal(t, 2, strings.Count(b.String()[strings.Index(b.String(), "accepted\n"):strings.Index(b.String(), "+--")], "o"), b.String())
 }
+
+// A standard deviation of two devices is doubted before anything else is built on it;
+// that few parts cannot show a margin comes after what was asked.
+func TestPlanCautions(t *testing.T) {
+	lines := func(a plan.Answer, err error) []string {
+		t.Helper()
+		require.NoError(t, err)
+		var b bytes.Buffer
+		require.NoError(t, report.PlanTable(&b, a, report.Style{}))
+		return strings.Split(b.String(), "\n")
+	}
+	two := plan.LotOf("two", []float64{3, 3.06})
+	text := lines(plan.ToSee(plan.ShiftRequest{Shift: 0.05, SD: two.SD, Risk: 0.2, Confidence: 0.95, Lot: two}))
+	require.Contains(t, text[0], "measure ")
+	require.Contains(t, strings.Join(text[1:3], "\n"), "Caution: from only 2 devices the sd is known badly.")
+	text = lines(plan.ToShowSame(plan.SameRequest{Margin: 0.05, SD: 0.08, Risk: 0.2}))
+	require.Equal(t, "To show that two lots are alike within ±50 mV, measure 52 of either lot.", text[0])
+	require.Contains(t, text, "As few as 6 of either lot would show it only 0.56 % of the time.")
+	text = lines(plan.ToShowSame(plan.SameRequest{Margin: 0.05, SD: 0.08, Risk: 0.2, N: 6}))
+	require.Contains(t, text[0], "6 of either lot cannot show")
+}

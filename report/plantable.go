@@ -77,7 +77,15 @@ func Chance(x float64) string {
 }
 
 // share writes a share that was given, or one that is compared with such.
-func share(x float64) string { return fmt.Sprintf("%.3g %%", 100*x) }
+// Only all of it is 100 %.
+func share(x float64) string {
+	for digits := 3; digits < 10; digits++ {
+		if text := fmt.Sprintf("%.*g", digits, 100*x); x >= 1 || text != "100" {
+			return text + " %"
+		}
+	}
+	return "more than 99.9999999 %"
+}
 
 // given writes a voltage that was given, or that followed from what was.
 func given(x float64) string {
@@ -204,9 +212,14 @@ func (p *planPrinter) shift(s *plan.Shift) {
 		p.answer("To see a shift of %s, measure %d of either lot.", given(s.Shift), s.Needed)
 		p.say("With %s it is then seen %s of the time (risk of missing it %s) at %s confidence.", sd, share(1-s.Risk), share(s.Risk), share(s.Confidence))
 	}
+	if s.Lot.N < fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
 	p.reaches("smallest shift seen", s.N, s.Smallest, sd, s.Needed == 0)
 	p.trimming(s.NeededT, s.Needed, s.N, s.PowerT)
-	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	if s.Lot.N >= fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
 }
 
 // reaches is a table of what n devices can do; alone where nothing stands above.
@@ -246,6 +259,10 @@ func (p *planPrinter) trimming(plain, needed, n int, chance float64) {
 	p.say("%s", text)
 }
 
+// fewForSD is the number of devices below which that their standard deviation is known
+// badly is said right behind the answer: of ten the upper bound is 1.5 times the sd.
+const fewForSD = 10
+
 // uncertain says how far the standard deviation of a lot can be trusted.
 func (p *planPrinter) uncertain(l plan.Lot, high float64, neededHigh, needed int) {
 	if !isNumber(high) || needed == 0 {
@@ -254,6 +271,10 @@ func (p *planPrinter) uncertain(l plan.Lot, high float64, neededHigh, needed int
 	n := "more than a million"
 	if neededHigh > 0 {
 		n = itoa(neededHigh)
+	}
+	if l.N < fewForSD {
+		p.say("Caution: from only %s the sd is known badly. It may be up to %s (90 %% confidence); then %s are needed.", count(l.N, "device"), about(high), n)
+		return
 	}
 	p.say("The sd of %s may be up to %s (90 %% confidence); then %s are needed.", count(l.N, "device"), about(high), n)
 }
@@ -266,7 +287,7 @@ func (p *planPrinter) same(s *plan.Same) {
 		truth = "if the true shift is " + given(s.Shift)
 	}
 	switch {
-	case s.Hopeless:
+	case s.Hopeless && s.N > 0:
 		p.answer("%d of either lot cannot show that the shift is within ±%s (%s): %s they would %s of the time.", s.Few, margin, sd, truth, Chance(s.Chance))
 	case s.N > 0:
 		p.answer("%d of either lot show that the shift is within ±%s %s of the time, %s (%s).", s.N, margin, Chance(s.Chance), truth, sd)
@@ -279,8 +300,16 @@ func (p *planPrinter) same(s *plan.Same) {
 	default:
 		p.answer("To show that two lots are alike within ±%s, measure %d of either lot.", margin, s.Needed)
 		p.say("With %s it is then shown %s of the time (risk of failing %s), %s. The %s interval of the shift has to lie within the margin.", sd, share(1-s.Risk), share(s.Risk), truth, share(s.Level))
+		if s.Hopeless {
+			p.say("As few as %d of either lot would show it only %s of the time.", s.Few, Chance(s.Chance))
+		}
+	}
+	if s.Lot.N < fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
 	}
 	p.reaches("smallest margin shown", s.N, s.Smallest, sd, false)
 	p.trimming(s.NeededT, s.Needed, s.N, s.ChanceT)
-	p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	if s.Lot.N >= fewForSD {
+		p.uncertain(s.Lot, s.SDHigh, s.NeededHigh, s.Needed)
+	}
 }

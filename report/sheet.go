@@ -39,6 +39,7 @@ type Sheet struct {
 	Spec   *lot.Specification // nil: the part has no limits
 
 	GuardSetAt, SendBackSetAt string         // when the lot's guard band and its rule to send back were set last, stamps as of [record.Stamp]; "": never
+	IdleSetAt                 string         // when the idle current of the part was set last, else the part; a stamp, "": not known
 	Sorting                   *lot.Sorting   // nil: not sorted
 	Compared                  *Compared      // nil: not compared with another lot
 	Trend                     *compare.Trend // the lots of the part in the order of time; nil: not gathered

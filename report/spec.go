@@ -22,7 +22,10 @@ func (s *Sheet) SpecFields() []Field {
 	}
 	out := []Field{{"limits", s.specLimits()}}
 	if sp.Why != "" {
-		out = append(out, Field{"no verdict", Clean(sp.Why)})
+		out = append(out, Field{"no verdict", Clean(sp.Why) + noVerdictStep(sp.Why)})
+		if sp.Outside.N > 0 { // what holds of the lot needs no verdict on its devices
+			return append(out, s.partsFields()...)
+		}
 		if sp.SendBack {
 			out = append(out, Field{"send back", s.sendBackLine()})
 		}
@@ -41,6 +44,14 @@ func (s *Sheet) SpecFields() []Field {
 		out = append(out, Field{"uncertainty", text})
 	}
 	return append(out, s.partsFields()...)
+}
+
+// noVerdictStep is what to do where no device can be judged, "" where the reason says it.
+func noVerdictStep(why string) string {
+	if why == lot.NoAbsolute {
+		return "; give the accuracy of the meters in a bench file (gatesill help bench-file), or a guard band in volts (lot edit --guard 20mV)"
+	}
+	return ""
 }
 
 // specLimits are the limits with their condition.
@@ -96,7 +107,11 @@ func (s *Sheet) GuardRule() string {
 			text += ", in the median " + FormatTwoDigits(g, "V")
 		}
 	}
-	return text + ", " + setWords[sp.GuardSet]
+	text += ", " + setWords[sp.GuardSet]
+	if sp.NoRoom() {
+		text += "; it leaves no room between the limits: no device can pass"
+	}
+	return text
 }
 
 func medianGuard(sp *lot.Specification) float64 {
@@ -186,7 +201,7 @@ func (s *Sheet) undecided() string {
 	}
 	var parts []string
 	for _, g := range GroupNames(list) {
-		parts = append(parts, namesWords(g.Names, 12)+": "+Clean(g.Text))
+		parts = append(parts, namesWords(g.Names, 12)+": "+Clean(g.Text)+noVerdictStep(g.Text))
 	}
 	return strings.Join(parts, "; ")
 }
@@ -233,7 +248,7 @@ func (s *Sheet) partsFields() []Field {
 	var out []Field
 	ppk := "declined, because " + sp.Ppk.Declined
 	if sp.Ppk.Declined == "" {
-		ppk = fmt.Sprintf("at least %.2f (%s confidence; %.2f in these %d devices)", sp.Ppk.Lower, percent(sp.Ppk.Level), sp.Ppk.Value, sp.Ppk.N)
+		ppk = fmt.Sprintf("at least %s (%s confidence; %s in these %d devices)", index(sp.Ppk.Lower), percent(sp.Ppk.Level), index(sp.Ppk.Value), sp.Ppk.N)
 	}
 	if sp.Ppk.Of != "all parts" && sp.Ppk.Declined == "" {
 		ppk += ", " + sp.Ppk.Of + " only"
@@ -283,4 +298,35 @@ func specBlock(p *printer, s Sheet, style Style) {
 	for _, f := range fields {
 		wrapped(p, "  "+f.Label+": ", "    ", f.Value, style.Width)
 	}
+}
+
+// SendBackJudged says whether the rule to send a lot back for a device outside the
+// limits of the data sheet is broken, as the specification has it: by V_GS(th) and
+// the guard band, whatever else is looked at. "" where the lot has no limits.
+func SendBackJudged(s *Sheet) string {
+	sp := s.Spec
+	if sp == nil {
+		return ""
+	}
+	if sp.Why != "" {
+		return "whether your stored rule is broken cannot be told: " + sp.Why
+	}
+	limits := "the data sheet's limits of V_GS(th)"
+	var failed []string
+	for _, d := range sp.Devices {
+		if d.Decision == lot.Fail {
+			failed = append(failed, d.Name)
+		}
+	}
+	text := "your stored rule is kept: no device is outside " + limits
+	switch n := sp.Count[lot.ConditionalFail]; {
+	case len(failed) > 0:
+		text = fmt.Sprintf("your stored rule is broken: %s outside %s: %s", count(len(failed), "device"), limits, namesWords(failed, 5))
+	case n > 0:
+		text = fmt.Sprintf("your stored rule is kept: %s outside %s by less than the guard band", count(n, "device"), limits)
+	}
+	if sp.Undecided > 0 {
+		text += fmt.Sprintf("; of %s it cannot be told", count(sp.Undecided, "device"))
+	}
+	return text
 }

@@ -2,6 +2,7 @@ package report_test
 
 import (
 	"bytes"
+	"gatesill/fit/plan"
 	"io"
 	"math"
 	"strings"
@@ -123,4 +124,42 @@ func TestOriginWords(t *testing.T) {
 		o.Groups = append(o.Groups, lot.OriginGroup{Name: "X", High: 1})
 	}
 	require.Contains(t, report.OriginWords(o), "and 5 more")
+}
+
+// What holds of the lot does not wait for verdicts on its devices, and where these
+// cannot be had for want of an uncertainty, the way to them is named.
+func TestSpecWithoutVerdicts(t *testing.T) {
+	s := invented.Lot(invented.Options{Devices: 30, Points: 30, Seed: 4})
+	var devs []lot.Device
+	for i := range s.Devices {
+		d := lot.Device{Name: s.Devices[i].Name, Result: fit.NewResult()}
+		d.Result.State, d.Result.Vgsth.Value = fit.Measured, 3+0.01*float64(i%10)-0.005*float64(i%7)
+		devs = append(devs, d)
+	}
+	o := lot.SpecOptions{Min: 2, Max: 4, Guard: lot.Guard{Value: 2, Unit: "u"}, GuardSet: lot.RuleBefore}
+	s.Spec = lot.SpecOf(devs, o)
+	text := fieldsOf(s)
+	for _, want := range []string{"no verdict: " + lot.NoAbsolute + "; give the accuracy of the meters in a bench file", "lot edit --guard 20mV", "Ppk: at least ", "tolerance interval: 95 % of all parts lie from ", "outside: 0 of "} {
+		require.Contains(t, text, want)
+	}
+	require.NotContains(t, text, "verdicts: ")
+	for i := range devs { // measured in another way than the data sheet says: nothing holds
+		devs[i].Unlike = "measured with the drain tied to the gate"
+	}
+	s.Spec = lot.SpecOf(devs, o)
+	text = fieldsOf(s)
+	require.NotContains(t, text, "Ppk")
+	require.NotContains(t, text, "bench file")
+}
+
+// What is proven is rounded down, in every place alike.
+func TestIndexRoundsDown(t *testing.T) {
+	s := specified(lot.SpecOptions{Min: 2, Max: 4, GuardSet: lot.RuleNone})
+	s.Spec.Ppk = lot.Capability{Value: 1.23999, Lower: 1.01579, Level: 0.95, N: 50, Of: "all parts"}
+	require.Contains(t, fieldsOf(s), "Ppk: at least 1.01 (95 % confidence; 1.23 in these 50 devices)")
+	var b bytes.Buffer
+	a := &plan.Capability{CapabilityRequest: plan.CapabilityRequest{Target: 1.33, Confidence: 0.95, Lot: plan.Lot{Name: "C", N: 50}, Low: 2, High: 4}, BoundOf: 1.01579}
+	a.Index.Cpk, a.Index.Cp = 1.23999, math.NaN()
+	require.NoError(t, report.PlanTable(&b, a, report.Style{}))
+	require.Contains(t, b.String(), "C: Ppk 1.23, at least 1.01 at 95 % confidence")
 }

@@ -42,7 +42,11 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 		wrapped(p, "", "  ", "No room for: "+strings.Join(dropped, ", ")+". A wider terminal or --json shows them.", style.Width)
 	}
 	if s.Spread.Estimator != "" {
-		wrapped(p, "", "", "Robust estimator: "+Clean(s.Spread.Estimator)+". Devices that never reach the current count as above every value in medians.", style.Width)
+		text := "Robust sd: 1.4826 × MAD, which a few odd devices cannot widen (gatesill help robust)."
+		if anyAbove(s.Spread) {
+			text += " Devices that never reach the current count as above every value in medians."
+		}
+		wrapped(p, "", "", text, style.Width)
 	}
 	warnings := s.Spread.Warnings
 	if sp := s.Spread.Split; sp != nil {
@@ -60,6 +64,16 @@ func SpreadTable(w io.Writer, s Sheet, style Style) error {
 	doubts(p, s, style)
 	notMeasured(p, s, style)
 	return p.err
+}
+
+// anyAbove reports whether a device never reached the current of a summary.
+func anyAbove(sp lot.Spread) bool {
+	for _, m := range sp.Summary {
+		if m.Above > 0 {
+			return true
+		}
+	}
+	return false
 }
 
 // spreadKeys are the quantities with a summary, in the order of fit.Keys.

@@ -39,7 +39,9 @@ const gap = 2 // blanks between columns
 func (c *column) width() int {
 	w := max(text.StringWidthWithoutEscSequences(c.head), text.StringWidthWithoutEscSequences(c.unit))
 	for _, cell := range c.cells {
-		w = max(w, text.StringWidthWithoutEscSequences(cell))
+		for line := range strings.SplitSeq(cell, "\n") {
+			w = max(w, text.StringWidthWithoutEscSequences(line))
+		}
 	}
 	return w
 }

@@ -48,7 +48,7 @@ func files(w io.Writer, s report.Sheet, style report.Style) error {
 }
 
 var layouts = map[string]layout{
-	"fit": report.FitTable, "spread": report.SpreadTable, "sort": report.SortTable, "history": history, "lots": card, "import": files,
+	"fit": report.FitTable, "spread": report.SpreadTable, "sort": report.SortTable, "history": history, "lots": card, "import": files, "bias": biasOf, "biasline": biasLine,
 }
 
 func show(t *testing.T, l layout, s report.Sheet, style report.Style) string {

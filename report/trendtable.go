@@ -50,27 +50,27 @@ func trendTable(p *printer, t *compare.Trend, style Style) {
 	if len(t.Pairs) == 0 {
 		return
 	}
-	shown, rest := t.Pairs, 0
-	if len(shown) > shownPairs {
-		shown = nil
-		for _, q := range t.Pairs {
-			if q.PAdjusted < 0.05 && len(shown) < shownPairs {
+	var shown []compare.PairOfLots
+	apart := 0
+	for _, q := range t.Pairs {
+		if q.PAdjusted < 0.05 {
+			if apart++; len(shown) < shownPairs {
 				shown = append(shown, q)
 			}
 		}
-		rest = len(t.Pairs) - len(shown)
+	}
+	if apart == 0 {
+		return // the sentence above says so
 	}
 	p.line("")
-	p.line("%s", style.paint(fmt.Sprintf("All pairs of lots (%d; intervals and p adjusted for that)", len(t.Pairs)), bold))
-	if len(shown) > 0 {
-		p.grid(pairsGrid(shown, style))
-	}
-	if rest > 0 {
-		p.line("%s not shown: they do not differ, or --json has them.", count(rest, "pair"))
+	p.line("%s", style.paint(fmt.Sprintf("Pairs of lots that differ (%d of %d; intervals and p adjusted for all)", apart, len(t.Pairs)), bold))
+	p.grid(pairsGrid(shown, style))
+	if rest := apart - len(shown); rest > 0 {
+		p.line("%s more that differ: --json has them.", count(rest, "pair"))
 	}
 }
 
-// shownPairs is how many pairs of lots are listed: those of five lots.
+// shownPairs is how many pairs of lots are listed.
 const shownPairs = 10
 
 func trendGrid(t *compare.Trend, style Style) grid {

@@ -49,6 +49,9 @@ func (k kind) updateOf(tx *Tx, noun, id, reason string, old, values []any, only 
 			continue
 		}
 		changed = true
+		if _, ok := values[i].(amountUnit); ok {
+			continue // stands in the entry of its amount
+		}
 		if _, ok := values[i].(ref); ok {
 			column = strings.TrimSuffix(column, "_id")
 		}
@@ -74,6 +77,8 @@ func asText(v any) string {
 		return x.name
 	case record.Num:
 		return x.String()
+	case amount:
+		return x.of.String()
 	case float64:
 		return strconv.FormatFloat(x, 'g', -1, 64)
 	case bool:
@@ -84,6 +89,16 @@ func asText(v any) string {
 	}
 	return fmt.Sprint(v)
 }
+
+// amount is the number of an amount whose unit is the next column, as [amountUnit].
+// The audit trail has one entry for the two.
+type amount struct{ of record.Amount }
+
+// Value gives the driver the number.
+func (a amount) Value() (driver.Value, error) { return a.of.Value, nil }
+
+// amountUnit is the unit of the amount in the column before it.
+type amountUnit string
 
 // ref is the id of another row, NULL when it is empty. The audit trail shows the
 // name of that row, under the column's name without _id.

@@ -348,3 +348,30 @@ func TestMapping(t *testing.T) {
 		require.Equal(t, map[string]string{"vg": "b"}, m)
 	})
 }
+
+// The audit trail has an amount in one entry, also where only its unit changed.
+func TestAmountsInTheTrail(t *testing.T) {
+	db := newStore(t)
+	var l record.Lot
+	update(t, db, func(tx *Tx) { l, _ = addLot(t, tx, "A", 0) })
+	for _, a := range []record.Amount{{Value: 0.05, Unit: "V"}, {Value: 0.02, Unit: "V"}, {Value: 0.02, Unit: "%"}, {}} {
+		l.Margin = a
+		update(t, db, func(tx *Tx) { require.NoError(t, tx.PutLot(&l, "")) })
+		view(t, db, func(tx *Tx) {
+			got, err := tx.Lot("A")
+			require.NoError(t, err)
+			require.Equal(t, a, got.Margin)
+		})
+	}
+	view(t, db, func(tx *Tx) {
+		trail, err := tx.Changes("lot", l.ID)
+		require.NoError(t, err)
+		var entries []string
+		for _, c := range trail {
+			if c.Field != "created" && c.Field != "margin_set_at" {
+				entries = append(entries, c.Field+" "+c.Old+" > "+c.New)
+			}
+		}
+		require.Equal(t, []string{"margin  > 0.05V", "margin 0.05V > 0.02V", "margin 0.02V > 0.02%", "margin 0.02% > "}, entries)
+	})
+}

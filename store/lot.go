@@ -19,8 +19,8 @@ func lotValues(l *record.Lot, part string) []any {
 	if q, ok := l.Quantity.Get(); ok {
 		quantity = int64(q)
 	}
-	return []any{l.Name, ref{l.PartID, part}, l.Supplier, l.DateCode, l.Marking, quantity, l.Sampled, l.Margin.Value, l.Margin.Unit,
-		orNull(l.MarginSetAt), l.Guard.Value, l.Guard.Unit, l.SendBack, orNull(l.DecidedAt), l.Note}
+	return []any{l.Name, ref{l.PartID, part}, l.Supplier, l.DateCode, l.Marking, quantity, l.Sampled, amount{l.Margin}, amountUnit(l.Margin.Unit),
+		orNull(l.MarginSetAt), amount{l.Guard}, amountUnit(l.Guard.Unit), l.SendBack, orNull(l.DecidedAt), l.Note}
 }
 
 const selectLot = `SELECT id, created_at, ` + lotColumns + ` FROM lot `

@@ -157,7 +157,9 @@ func (r *reader) takeIn(rd io.Reader, size int64) ([]byte, error) {
 		return nil, r.ioError(err)
 	}
 	if len(raw) == 0 {
-		return nil, r.refused(0, "it is empty")
+		e := r.refused(0, "it is empty")
+		e.Hint = "save the readings anew: a header and a row for each reading, such as device,vgs_at_10mA_V"
+		return nil, e
 	}
 	if err := r.checkHead(raw[:min(len(raw), headBytes)]); err != nil {
 		return nil, err

@@ -25,7 +25,7 @@ func TestFilesThatAreNoTables(t *testing.T) {
 	for _, c := range []struct{ name, path, words, hint string }{
 		{"folder", dir, "it is a folder", ""},
 		{"absent", filepath.Join(dir, "nowhere.csv"), "there is no such file", ""},
-		{"empty", write("empty.csv", ""), "it is empty", ""},
+		{"empty", write("empty.csv", ""), "it is empty", "save the readings anew"},
 		{"gzip", write("a.csv.gz", "\x1f\x8b\x08\x00abcdef"), "gzip", "unpack"},
 		{"zip", write("a.xlsx", "PK\x03\x04abcdef"), "spreadsheet", "save the sheet as CSV"},
 		{"xz", write("a.xz", "\xfd7zXZ\x00abc"), "xz", "unpack"},

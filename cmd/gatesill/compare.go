@@ -5,6 +5,7 @@ import (
 	"strings"
 
 	"github.com/spf13/cobra"
+	"github.com/spf13/pflag"
 
 	"gatesill/cmd/internal/job"
 	"gatesill/store/record"
@@ -38,8 +39,8 @@ also laid out in time.`,
 			if rq.Level, err = levelOf(level); err != nil {
 				return err
 			}
-			if f := cmd.Flags().Lookup("margin"); f.Changed && rq.Margin.Unit == "" {
-				return job.Usage("--margin 50mV", "--margin: no margin given")
+			if err := marginGiven(cmd, &rq); err != nil {
+				return err
 			}
 			return job.Compare(cmd.Context(), env, args[0], args[1:], o, rq)
 		},
@@ -47,16 +48,33 @@ also laid out in time.`,
 	}
 	fs := cmd.Flags()
 	fs.SortFlags = false
-	fs.Var(choice{&rq.By, []string{"vgs-idle", "vgsth"}}, "by", "quantity (default: gate bias at the idle current where the lots have it)")
 	num(fs, &o.At, "at", "A", "compare at this current (of V_GS(th), or with --by vgs-idle of the idle current)")
-	fs.Var(amountFlag{&rq.Margin, []string{"V", "%", "A"}}, "margin", "largest shift that does not matter: 50mV, 10% or 25mA of the idle current")
 	fs.StringVar(&level, "level", "95", "of the interval, in `%`, 50 to 99.9")
+	comparedFlags(fs, &rq)
+	fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 when a lot differs or is outside the margin")
+	return cmd
+}
+
+// comparedFlags are how lots are compared, here and in a report.
+func comparedFlags(fs *pflag.FlagSet, rq *job.CompareRequest) {
+	fs.Var(choice{&rq.By, []string{"vgs-idle", "vgsth"}}, "by", "quantity (default: gate bias at the idle current where the lots have it)")
+	fs.Var(amountFlag{&rq.Margin, []string{"V", "%", "A"}}, "margin", "largest shift that does not matter: 50mV, 10% or 25mA of the idle current")
 	fs.BoolVar(&rq.Paired, "paired", false, "the same devices measured twice: pair them by serial")
 	fs.BoolVar(&rq.Unpaired, "unpaired", false, "never pair them (default: where serials and values go together)")
 	num(fs, &rq.Tempco, "tempco", "V/K", "slope of the gate voltage, taken off between lots of known temperatures: -4mV/K")
+	num(fs, &rq.TempcoU, "tempco-u", "V/K", "standard uncertainty of that slope (default: 20 % of it)")
 	num(fs, &rq.Beta, "beta", "A/V2", "gain factor of lots whose curves were not measured")
-	fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 when a lot differs or is outside the margin")
-	return cmd
+}
+
+// comparedOnly are those flags: they need a lot to compare with.
+var comparedOnly = []string{"by", "margin", "paired", "unpaired", "tempco", "beta"}
+
+// marginGiven refuses an empty --margin.
+func marginGiven(cmd *cobra.Command, rq *job.CompareRequest) error {
+	if f := cmd.Flags().Lookup("margin"); f.Changed && rq.Margin.Unit == "" {
+		return job.Usage("--margin 50mV", "--margin: no margin given")
+	}
+	return nil
 }
 
 // levelOf reads --level: a number of percent.

@@ -67,8 +67,11 @@ func (f shareFlag) Set(text string) error {
 	return nil
 }
 
-// countFlag takes a whole number of parts.
-type countFlag struct{ dst *record.Num }
+// countFlag takes a whole number of parts, at least so many.
+type countFlag struct {
+	dst   *record.Num
+	least int
+}
 
 func (f countFlag) String() string {
 	if f.dst == nil {
@@ -78,12 +81,44 @@ func (f countFlag) String() string {
 }
 func (f countFlag) Type() string { return "NUMBER" }
 func (f countFlag) Set(text string) error {
-	n, err := strconv.Atoi(strings.TrimSpace(text))
-	if err != nil || n < 0 {
-		return errors.New("must be a whole number, 0 or more")
+	n, err := wholeNumber(text, f.least, 0)
+	if err == nil {
+		*f.dst = record.Known(float64(n))
 	}
-	*f.dst = record.Known(float64(n))
-	return nil
+	return err
+}
+
+// wholeNumber reads a whole number from least to most; most 0 is no limit.
+func wholeNumber(text string, least, most int) (int, error) {
+	n, err := strconv.Atoi(strings.TrimSpace(text))
+	switch {
+	case err == nil && n >= least && (most == 0 || n <= most):
+		return n, nil
+	case most > 0:
+		return 0, fmt.Errorf("must be a whole number from %d to %d", least, most)
+	}
+	return 0, fmt.Errorf("must be a whole number, %d or more", least)
+}
+
+// wholeFlag takes a whole number from least to most, 0 for no greatest.
+type wholeFlag struct {
+	dst         *int
+	least, most int
+}
+
+func (f wholeFlag) String() string {
+	if f.dst == nil || *f.dst == 0 {
+		return ""
+	}
+	return strconv.Itoa(*f.dst)
+}
+func (f wholeFlag) Type() string { return "NUMBER" }
+func (f wholeFlag) Set(text string) error {
+	n, err := wholeNumber(text, f.least, f.most)
+	if err == nil {
+		*f.dst = n
+	}
+	return err
 }
 
 // choice takes one of some words.
@@ -132,4 +167,16 @@ func (f amountFlag) Set(text string) error {
 		*f.dst = a
 	}
 	return err
+}
+
+// clearable is an amount that is kept in the store, where "none" takes it away again.
+type clearable struct{ amountFlag }
+
+func (f clearable) Type() string { return f.amountFlag.Type() + "|none" }
+func (f clearable) Set(text string) error {
+	if strings.TrimSpace(text) == "none" {
+		*f.dst = record.Amount{}
+		return nil
+	}
+	return f.amountFlag.Set(text)
 }

@@ -14,8 +14,9 @@ func gaugeCmd(env *job.Env) *cobra.Command {
 		Long: `Shows from devices put in again how well the bench repeats: the smallest
 difference between two devices that counts, the smallest honest bin, operators and
 fixtures apart, drift along a session, control parts, and what became of devices
-measured at several dates, as read and with --tempco. Once five devices or more
-have been put in again ten times in all, sort, spread and what follows hold it in
+measured at several dates, as read and with --tempco. Put in again is what comes
+twice in one session: one of import --session NAME, operator and fixture, on one day.
+Once five devices or more have been put in again ten times in all, sort, spread and what follows hold it in
 every u. Ten devices, three times each, in the random order of --rounds 3, are best.`,
 		Example: `  gatesill gauge bag1 --rounds 3
   gatesill import bag1 again.csv --operator anna
@@ -24,11 +25,8 @@ every u. Ten devices, three times each, in the random order of --rounds 3, are b
 		Args: exactly(1),
 		RunE: func(cmd *cobra.Command, args []string) error {
 			fs := cmd.Flags()
-			if fs.Changed("rounds") && (rq.Rounds < 1 || rq.Rounds > 100) {
-				return job.Usage("--rounds 3", "--rounds: %d, must be from 1 to 100", rq.Rounds)
-			}
-			if fs.Changed("parts") && (rq.Parts < 2 || rq.Rounds == 0) {
-				return job.Usage("--rounds 3 --parts 10", "--parts: two or more, and with --rounds")
+			if fs.Changed("parts") && rq.Rounds == 0 {
+				return job.Usage("--rounds 3 --parts 10", "--parts: only with --rounds")
 			}
 			return job.Gauge(cmd.Context(), env, args[0], o, rq)
 		},
@@ -39,8 +37,8 @@ every u. Ten devices, three times each, in the random order of --rounds 3, are b
 	fs.Var(choice{&rq.By, []string{"vgsth", "vgs-idle"}}, "by", "gate voltage (default: at the idle current where the lot has one)")
 	num(fs, &rq.Tempco, "tempco", "V/K", "temperature coefficient of that gate voltage: -4mV/K")
 	num(fs, &rq.Repeatability, "repeatability", "V", "standard deviation of a device put in again, known from elsewhere")
-	fs.IntVar(&rq.Rounds, "rounds", 0, "only write a random order to measure in, for this `NUMBER` of rounds")
-	fs.IntVar(&rq.Parts, "parts", 0, "`NUMBER` of devices in that order (default 10)")
+	fs.Var(wholeFlag{&rq.Rounds, 1, 100}, "rounds", "only write a random order to measure in, for this `NUMBER` of rounds")
+	fs.Var(wholeFlag{&rq.Parts, 2, 0}, "parts", "`NUMBER` of devices in that order (default 10)")
 	atFlag(cmd, &o)
 	return cmd
 }

@@ -16,13 +16,14 @@ var topics = []struct {
 	show        func(*job.Env) error
 }{
 	{"codes", "what each warning and flag code means", job.HelpCodes},
+	{"robust", "how spread is told without the odd ones, and why", job.HelpRobust},
 	{"bench-file", "a bench file with every key", job.HelpBench},
 	{"exit-codes", "what the exit codes mean", helpExit},
 }
 
 func helpCmd(env *job.Env) *cobra.Command {
 	cmd := &cobra.Command{
-		Use: "help [codes|CODE|bench-file|exit-codes|VERB]", Short: "Help on a verb, a warning code or a topic",
+		Use: "help [codes|CODE|robust|bench-file|exit-codes|VERB]", Short: "Help on a verb, a warning code or a topic",
 		Example: "  gatesill help import\n  gatesill help codes\n  gatesill help two-populations",
 		RunE: func(cmd *cobra.Command, args []string) error {
 			root := cmd.Root()

@@ -100,8 +100,8 @@ func (f *lotFlags) add(cmd *cobra.Command) {
 	fs.StringVar(&f.marking, "marking", "", "marking on the devices")
 	num(fs, &f.quantity, "quantity", "", "devices in the lot, not only those measured")
 	fs.StringVar(&f.sampled, "sampled", "", "how the sample was taken, in `WORDS`")
-	fs.Var(amountFlag{&f.margin, []string{"V", "%", "A"}}, "margin", "largest shift that does not matter: 50mV, 10% or 25mA of the idle current")
-	fs.Var(amountFlag{&f.guard, []string{"V", "u"}}, "guard", "guard band at a limit: 20mV, or 2u for twice the standard uncertainty")
+	fs.Var(clearable{amountFlag{&f.margin, []string{"V", "%", "A"}}}, "margin", "largest shift that does not matter: 50mV, 10% or 25mA of the idle current; none clears it")
+	fs.Var(clearable{amountFlag{&f.guard, []string{"V", "u"}}}, "guard", "guard band at a limit: 20mV, or 2u for twice the standard uncertainty; none clears it")
 	fs.Var(choice{&f.sendBack, []string{"outside-limits", "outside-margin"}}, "send-back", "your rule for sending a lot back")
 	fs.StringVar(&f.note, "note", "", "anything else")
 }

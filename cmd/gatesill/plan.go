@@ -36,10 +36,10 @@ it shows the lengths of all-good samples. --from LOT takes its quantity for --of
 			"  gatesill plan find\n  gatesill plan find --bad 10% --risk 10%\n  gatesill plan find --n 22 --of 200",
 			func(fs *pflag.FlagSet, rq *job.PlanRequest) {
 				badFlag(fs, rq, "bad parts assumed: `10%` of them, or a number of those in a lot of --of")
-				fs.Var(countFlag{&rq.Of}, "of", "parts in the lot (default: so many that it does not matter)")
+				fs.Var(countFlag{&rq.Of, 1}, "of", "parts in the lot (default: so many that it does not matter)")
 				fs.Var(shareFlag{&rq.Risk}, "risk", "of missing all bad parts (default 5%)")
 				nFlag(fs, rq)
-				fs.Var(countFlag{&rq.Found}, "found", "bad ones among the --n measured (default 0)")
+				fs.Var(countFlag{&rq.Found, 0}, "found", "bad ones among the --n measured (default 0)")
 			},
 		},
 		{
@@ -114,7 +114,7 @@ its V_GS(th) and the limits of the part.`,
 				num(fs, &rq.K, "k", "", "factor of a plan that is there already")
 				limitFlags(fs, rq)
 				fs.StringVarP(&rq.Output, "output", "o", "", "`FILE.svg` to draw the operating characteristic in, - for stdout")
-				fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 unless the lot of --from is accepted")
+				fs.BoolVar(&rq.Fail, "fail", false, "exit code 3 when the lot of --from is not accepted")
 			},
 		},
 	} {
@@ -135,7 +135,7 @@ its V_GS(th) and the limits of the part.`,
 }
 
 func nFlag(fs *pflag.FlagSet, rq *job.PlanRequest) {
-	fs.Var(countFlag{&rq.N}, "n", "parts measured: what can they show")
+	fs.Var(countFlag{&rq.N, 1}, "n", "parts measured: what can they show")
 }
 
 func badFlag(fs *pflag.FlagSet, rq *job.PlanRequest, usage string) {

@@ -113,11 +113,12 @@ uncertainty stays in its bin and is marked maybe, with the bin across the edge.`
 func reportCmd(env *job.Env) *cobra.Command {
 	var o job.SheetOptions
 	var out, reference string
+	var rq job.CompareRequest
 	cmd := &cobra.Command{
 		Use: "report LOT -o FILE", Short: "Write the lot as one self-contained page",
 		Long: `Writes one HTML file with curves, thresholds, bins, flags, conditions and
 cautions, to read, print or keep; with --compare also the comparison with a
-reference lot. It loads nothing from anywhere, and the same data gives the same
+reference lot, by the same flags as those of gatesill compare. It loads nothing from anywhere, and the same data gives the same
 bytes.`,
 		Example: "  gatesill report bag1 -o bag1.html\n  gatesill report 2612 -o 2612.html --compare 2431",
 		Args:    exactly(1),
@@ -125,12 +126,24 @@ bytes.`,
 			if out == "" {
 				return job.Usage("gatesill report "+job.Quote(args[0])+" -o FILE.html", "report: no output file")
 			}
-			return job.Report(cmd.Context(), env, args[0], out, reference, o)
+			if reference == "" {
+				for _, name := range comparedOnly {
+					if cmd.Flags().Changed(name) {
+						return job.Usage("gatesill report "+job.Quote(args[0])+" -o FILE.html --compare LOT", "--%s: says how lots are compared, and --compare names none", name)
+					}
+				}
+			}
+			if err := marginGiven(cmd, &rq); err != nil {
+				return err
+			}
+			return job.Report(cmd.Context(), env, args[0], out, reference, o, rq)
 		},
 		ValidArgsFunction: lots(env, false),
 	}
 	cmd.Flags().StringVarP(&out, "output", "o", "", "`FILE` to write, - for stdout")
-	cmd.Flags().StringVar(&reference, "compare", "", "reference `LOT` to hold it against")
+	cmd.Flags().StringVar(&reference, "compare", "", "reference `LOT` to hold it against; only with it:")
+	cmd.Flags().SortFlags = false
+	comparedFlags(cmd.Flags(), &rq)
 	if err := cmd.RegisterFlagCompletionFunc("compare", manyLots(env)); err != nil {
 		panic(err) // the flag is not there
 	}

@@ -9,6 +9,7 @@ import (
 	"os/user"
 	"runtime/debug"
 	"slices"
+	"strconv"
 	"strings"
 	"sync"
 	"unicode/utf8"
@@ -69,7 +70,8 @@ A bare number is in SI base units; prefixes and units are taken everywhere:
 	p.BoolVarP(&env.Verbose, "verbose", "v", false, "say which store is used and what takes time")
 	p.BoolVar(&env.Yes, "yes", false, "take yes for the answer where it asks whether to go on (meters --write: write over the file)")
 	root.AddCommand(
-		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env), biasCmd(env), matchCmd(env), setCmd(env), compareCmd(env), gaugeCmd(env),
+		demoCmd(env), lotCmd(env), deviceCmd(env), importCmd(env), sweepCmd(env), fitCmd(env), spreadCmd(env), sortCmd(env),
+		matchCmd(env), setCmd(env), biasCmd(env), compareCmd(env), gaugeCmd(env),
 		planCmd(env), reportCmd(env), exportCmd(env), metersCmd(env), backupCmd(env), versionCmd(env),
 	)
 	root.AddCommand(processCmds()...)
@@ -216,7 +218,14 @@ func between(lo, hi int) cobra.PositionalArgs {
 		if len(args) >= lo && (hi < 0 || len(args) <= hi) {
 			return nil
 		}
-		return job.Usage("usage: "+cmd.UseLine(), "%s: %d arguments", cmd.CommandPath(), len(args))
+		want := fmt.Sprintf("%d to %d", lo, hi)
+		switch {
+		case hi < 0:
+			want = fmt.Sprintf("at least %d", lo)
+		case lo == hi:
+			want = strconv.Itoa(lo)
+		}
+		return job.Usage("usage: "+cmd.UseLine(), "%s: %d given behind it, needs %s", cmd.CommandPath(), len(args), want)
 	}
 }
 

@@ -34,7 +34,7 @@ func Against(ref, p *Plan) *Change {
 	}
 	if n, r := p.Now, ref.Now; n != nil && r != nil {
 		if n.Trimmed {
-			say("The trimmer reaches %s of lot %s and %s of lot %s.", coverWords(r.Covered), ref.Lot, coverWords(n.Covered), p.Lot)
+			say("The trimmer reaches %s of lot %s, and %s of lot %s.", coverWords(r.Covered), ref.Lot, coverWords(n.Covered), p.Lot)
 		}
 		if n.Idle.Known > 0 && r.Idle.Known > 0 {
 			say("Left as it is, at %s, it gives lot %s %s in the median and lot %s %s (least %s, greatest %s).", volts(n.Middle),
@@ -52,10 +52,19 @@ func coverWords(c Covered) string {
 	return text
 }
 
-// Ways are the ways to serve the lot, in sentences, none preferred: another resistor, another trimmer,
-// one resistor a bin. Empty without a network.
+// Ways are the ways to serve the lot, in sentences, none preferred: as it is where that
+// does, another resistor, another trimmer, one resistor a bin. Empty without a network.
 func (p *Plan) Ways() []string {
 	var out []string
+	if n := p.Now; n != nil && n.Trimmed && isNumber(p.Band.Low) {
+		reach, whose := n.Sure, "every board reaches"
+		if n.Given {
+			reach, whose = n.Reach, "the trimmer reaches"
+		}
+		if reach.Holds(p.Band.Low) && reach.Holds(p.Band.High) {
+			out = append(out, fmt.Sprintf("As it is, %s %.3f to %s, what 95 %% of the lot need: nothing has to change.", whose, p.Band.Low, volts(p.Band.High)))
+		}
+	}
 	if n := p.Network; n != nil {
 		if text := ResistorWords(p.Choices, n); text != "" {
 			out = append(out, text)
@@ -66,11 +75,12 @@ func (p *Plan) Ways() []string {
 		if t.Change == ChangeBottom {
 			kept, changed = "top "+Ohms(t.Network.Top), "bottom "+Ohms(t.Network.Bottom)
 		}
-		out = append(out, fmt.Sprintf("Use a trimmer of %s with %s (%s) and %s: every board reaches %s to %s.", Ohms(t.Network.Trimmer), changed, t.Series, kept, volts(t.Sure.Low), volts(t.Sure.High)))
+		out = append(out, fmt.Sprintf("Use a trimmer of %s with %s (%s) and %s: every board reaches %.3f to %s; %.3f to %s lie between %.0f and %.0f %% of its travel.", Ohms(t.Network.Trimmer), changed, t.Series, kept,
+			t.Sure.Low, volts(t.Sure.High), t.Wanted.Low, volts(t.Wanted.High), 100*t.From, 100*t.To))
 	} else if t != nil {
-		out = append(out, fmt.Sprintf("No trimmer reaches %s to %s on every board with these tolerances.", volts(t.Wanted.Low), volts(t.Wanted.High)))
-	} else if p.Reach != nil && isNumber(p.Band.Low) {
-		out = append(out, fmt.Sprintf("Re-centre the trimmer: it has to reach %s to %s.", volts(p.Band.Low), volts(p.Band.High)))
+		out = append(out, fmt.Sprintf("No trimmer reaches %.3f to %s on every board with these tolerances.", t.Wanted.Low, volts(t.Wanted.High)))
+	} else if p.Reach != nil && isNumber(p.Band.Low) && len(out) == 0 {
+		out = append(out, fmt.Sprintf("Re-centre the trimmer: it has to reach %.3f to %s.", p.Band.Low, volts(p.Band.High)))
 	}
 	if len(p.Bins) > 1 {
 		least, most := math.Inf(1), math.Inf(-1)
@@ -79,11 +89,19 @@ func (p *Plan) Ways() []string {
 		}
 		text := fmt.Sprintf("Sort: %d bins with a resistor each", len(p.Bins))
 		if isNumber(least) && isNumber(most) {
-			text += fmt.Sprintf(" keep the idle current from %s to %s, tolerances aside", AmpWords(least), AmpWords(most))
+			text += fmt.Sprintf(" give idle currents from %s to %s%s, tolerances aside", AmpWords(least), AmpWords(most), p.untouched())
 		}
 		out = append(out, text+".")
 	}
 	return out
+}
+
+// untouched are words for a trimmer that nobody turns.
+func (p *Plan) untouched() string {
+	if p.Network != nil && p.Network.Trimmer > 0 {
+		return " with the trimmer in its middle"
+	}
+	return ""
 }
 
 // worst is the least (side -1) or greatest current in a bin; NaN beyond a curve.
@@ -99,8 +117,8 @@ func (b *BinChoice) worst(side int) float64 {
 }
 
 // ResistorWords says which value of one resistor brings the gate voltage to where it is
-// wanted: "Change the top resistor from 1.96 kΩ to 1.82 kΩ (E96): 3.179 V, -9.4 mV from the centre; ...". "" where no
-// choice changes only one.
+// wanted: "Change the top resistor from 1.96 kΩ to 1.82 kΩ (E96): 3.179 V, -9.4 mV from
+// the centre; ...". "" where no choice changes only one.
 func ResistorWords(choices []Choice, from *Network) string {
 	for _, what := range []string{ChangeTop, ChangeBottom} {
 		value := func(n *Network) float64 {
@@ -109,26 +127,38 @@ func ResistorWords(choices []Choice, from *Network) string {
 			}
 			return n.Bottom
 		}
-		var parts []string
+		var parts, kept []string
+		found := false
 		for i := range choices {
-			if c := &choices[i]; c.Change == what {
+			c := &choices[i]
+			if c.Change != what {
+				continue
+			}
+			found = true
+			if old := value(from); math.Abs(value(&c.Network)-old) < 1e-6*old {
+				kept = append(kept, fmt.Sprintf("%s has nothing nearer than the %s that it is: %s, %s from the centre", c.Series, Ohms(old), volts(c.Gate), millivolts(c.Off)))
+			} else {
 				parts = append(parts, fmt.Sprintf("%s (%s): %s, %s from the centre", Ohms(value(&c.Network)), c.Series, volts(c.Gate), millivolts(c.Off)))
 			}
 		}
-		if len(parts) == 0 {
+		if !found {
 			continue
+		}
+		if len(parts) == 0 {
+			return "Keep the " + what + " resistor: " + strings.Join(kept, "; ") + "."
 		}
 		head := "Choose as the " + what + " resistor "
 		if old := value(from); old > 0 {
 			head = fmt.Sprintf("Change the %s resistor from %s to ", what, Ohms(old))
 		}
-		return head + strings.Join(parts, "; to ") + "."
+		return head + strings.Join(append([]string{strings.Join(parts, "; to ")}, kept...), "; ") + "."
 	}
 	return ""
 }
 
-// ResistorFor is [ResistorWords] for a network and the gate voltage wanted, with values of these
-// series: for a comparison that says a bias resistor has to change. "" where the network is not complete or cannot give it.
+// ResistorFor is [ResistorWords] for a network and the gate voltage wanted, with values
+// of these series: for a comparison that says a bias resistor has to change. "" where
+// the network is not complete or cannot give it. Checked: TestAgainst.
 func ResistorFor(n *Network, gate float64, series []Series) string {
 	if n.Check() != nil || !n.Complete() || !(gate/n.Supply > 0 && gate/n.Supply < 1) {
 		return ""
@@ -140,8 +170,9 @@ func ResistorFor(n *Network, gate float64, series []Series) string {
 	return ResistorWords(all, n)
 }
 
-// ExtremeLine is the devices with the least and the greatest gate voltage on one line; nil where
-// fewer than two have a current that is told. The total is twice the idle current where o has none.
+// ExtremeLine is the devices with the least and the greatest gate voltage on one line;
+// nil where fewer than two have a current that is told. The total is twice the idle
+// current where o has none.
 func (p *Plan) ExtremeLine(o LineOptions) *Line {
 	var lo, hi *Unit
 	for _, u := range p.counted() {

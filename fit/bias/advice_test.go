@@ -22,6 +22,17 @@ func TestAgainst(t *testing.T) {
 			t.Errorf("%q is not in\n%s", want, all)
 		}
 	}
+	// A trimmer that does: 2.883 to 3.202 V of the old lot lie within 2.80 to 3.25 V.
+	for _, c := range []struct {
+		high float64
+		want string
+	}{{3.25, "As it is, the trimmer reaches 2.883 to 3.202 V"}, {3.15, "Re-centre the trimmer: it has to reach 2.883 to 3.202 V"}} {
+		given := o
+		given.Network, given.Reach = nil, &Range{2.80, c.high}
+		if got := strings.Join(planOf(t, scenarioLot(t, "2431"), given).Ways(), "\n"); !strings.HasPrefix(got, c.want) {
+			t.Errorf("to %g V: %s", c.high, got)
+		}
+	}
 	if got := ResistorFor(o.Network, 3.188, []Series{E24}); !strings.Contains(got, "to 1.8 kΩ (E24): 3.200 V, +12 mV") {
 		t.Error(got)
 	}

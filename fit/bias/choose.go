@@ -43,13 +43,15 @@ func (p *Plan) choose() {
 
 // choices are the values of one series that bring the gate voltage nearest to v: top
 // changed, bottom changed, and both with their sum within a fifth of what it was.
+// Checked: TestChoicesAreNearest.
 func (n *Network) choices(s Series, v float64, units []*Unit) []Choice {
 	var out []Choice
 	add := func(what string, m Network) {
-		c := Choice{Series: s, Change: what, Network: m, Gate: m.At(0.5)}
-		c.Off = c.Gate - v
-		c.Idle = spreadAt(units, c.Gate)
-		out = append(out, c)
+		// The same resistors again are no choice more.
+		if slices.ContainsFunc(out, func(c Choice) bool { return c.Network == m }) {
+			return
+		}
+		out = append(out, choiceOf(s, what, m, v, units))
 	}
 	if m, ok := n.nearestTop(s, v); ok {
 		add(ChangeTop, m)
@@ -61,6 +63,12 @@ func (n *Network) choices(s Series, v float64, units []*Unit) []Choice {
 		add(ChangeBoth, m)
 	}
 	return out
+}
+
+// choiceOf is network m, chosen for gate voltage v.
+func choiceOf(s Series, what string, m Network, v float64, units []*Unit) Choice {
+	gate := m.At(0.5)
+	return Choice{Series: s, Change: what, Network: m, Gate: gate, Off: gate - v, Idle: spreadAt(units, gate)}
 }
 
 // idealTop gives the top resistor with which the network gives v, the trimmer in its
@@ -111,29 +119,38 @@ func (n *Network) nearest(values []float64, v float64, set func(m *Network, r fl
 	return best, len(values) > 0
 }
 
-// nearestBoth changes both resistors; of pairs that come as near to v, that with the least change
-// of their sum.
+// mostChange is by what factor the sum of both resistors may grow, so that the current
+// through the divider stays about what it was (judgement).
+const mostChange = 1.2
+
+// nearestBoth changes both resistors; of the pairs within 0.1 mV of the nearest, that
+// with the least change of their sum.
 func (n *Network) nearestBoth(s Series, v float64) (Network, bool) {
 	if !n.Complete() {
 		return *n, false
 	}
 	sum := n.Top + n.Bottom
-	best, off, moved := *n, math.Inf(1), math.Inf(1)
-	share := v / n.Supply
-	for _, b := range s.Around(share*sum, len(s.Decade())/2) {
+	type pair struct {
+		Network
+		off, change float64
+	}
+	var pairs []pair
+	least := math.Inf(1)
+	for _, b := range s.Around(mostChange*sum, 2*len(s.Decade())) {
 		m := *n
 		m.Bottom = b
 		m, ok := m.nearestTop(s, v)
-		change := math.Abs(m.Top+m.Bottom-sum) / sum
-		if !ok || change > 0.2 {
+		q := pair{m, math.Abs(m.At(0.5) - v), math.Abs(m.Top+m.Bottom-sum) / sum}
+		if !ok || q.change > mostChange-1 {
 			continue
 		}
-		d := math.Abs(m.At(0.5) - v)
-		if d < off-1e-4 || d < off+1e-4 && change < moved {
-			best, off, moved = m, d, change
-		}
+		pairs, least = append(pairs, q), math.Min(least, q.off)
 	}
-	return best, !math.IsInf(off, 1)
+	pairs = slices.DeleteFunc(pairs, func(q pair) bool { return q.off > least+1e-4 })
+	if len(pairs) == 0 {
+		return *n, false
+	}
+	return slices.MinFunc(pairs, func(a, b pair) int { return cmp.Compare(a.change, b.change) }).Network, true
 }
 
 // trimmers are the values that trimmers come in, per decade (common practice, no source).
@@ -171,7 +188,8 @@ func (n *Network) recentre(series []Series, want Range) Trim {
 				if best, ok := m.covering(s, t.Change, want, middle); ok {
 					t.Network, t.Series, t.Found = best, s, true
 					t.Reach, t.Sure = best.Reach(), best.Sure()
-					t.From, t.To = best.Setting(want.Low), best.Setting(want.High)
+					from, to := best.Setting(want.Low), best.Setting(want.High)
+					t.From, t.To = math.Min(from, to), math.Max(from, to)
 					return t
 				}
 			}
@@ -211,13 +229,14 @@ type BinChoice struct {
 	Choice
 }
 
-// ForBins proposes, for every bin that has devices, the values for its middle; the
-// idle current is that of its devices.
+// ForBins proposes, for every bin that has devices, a value of the finest series for
+// its middle; the idle current is that of its devices.
 func (p *Plan) ForBins(bins []lot.Bin) {
 	n := p.Network
 	if n == nil {
 		return
 	}
+	finest := slices.MaxFunc(p.Series, func(a, b Series) int { return cmp.Compare(len(a.Decade()), len(b.Decade())) })
 	for _, b := range bins {
 		if len(b.Devices) == 0 {
 			continue
@@ -232,10 +251,14 @@ func (p *Plan) ForBins(bins []lot.Bin) {
 				units = append(units, u)
 			}
 		}
-		list := n.choices(p.Series[0], (b.Low+b.High)/2, units)
-		if len(list) == 0 {
-			continue
+		middle, change := (b.Low+b.High)/2, ChangeTop
+		m, ok := n.nearestTop(finest, middle)
+		if !(n.Bottom > 0) {
+			change = ChangeBottom
+			m, ok = n.nearestBottom(finest, middle)
 		}
-		p.Bins = append(p.Bins, BinChoice{b.Name, b.Low, b.High, names, list[0]})
+		if ok {
+			p.Bins = append(p.Bins, BinChoice{b.Name, b.Low, b.High, names, choiceOf(finest, change, m, middle, units)})
+		}
 	}
 }

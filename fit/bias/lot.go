@@ -220,11 +220,11 @@ func (p *Plan) supplies() error {
 	for _, u := range p.counted() {
 		v := u.Gate.Value
 		if v*n.Supply <= 0 {
-			return fmt.Errorf("device %s needs %s, and a divider of %s gives none of that sign: %w", u.Name, volts(v), volts(n.Supply), ErrSupply)
+			return fmt.Errorf("%w: device %s needs %s, and a divider of %s gives none of that sign", ErrSupply, u.Name, volts(v), supplyWords(n.Supply))
 		}
 	}
 	if !isNumber(p.Centre) || math.Abs(p.Centre) >= math.Abs(n.Supply) {
-		return fmt.Errorf("the lot's centre is %s, and the supply %s: %w", volts(p.Centre), volts(n.Supply), ErrSupply)
+		return fmt.Errorf("%w: the lot's centre is %s, the supply %s", ErrSupply, volts(p.Centre), supplyWords(n.Supply))
 	}
 	return nil
 }
@@ -278,9 +278,9 @@ func (p *Plan) now() {
 	var w Now
 	switch {
 	case p.Reach != nil:
-		w.Reach, w.Sure, w.Trimmed, w.Given = *p.Reach, *p.Reach, true, true
+		w.Reach, w.Trimmed, w.Given = *p.Reach, true, true
 		w.Middle = (w.Reach.Low + w.Reach.High) / 2
-		w.Tolerated = Range{w.Middle, w.Middle}
+		w.Tolerated, w.Sure, w.RSS = noRange, noRange, math.NaN()
 	case n != nil && n.Complete():
 		w.Middle, w.Reach, w.Tolerated, w.Sure = n.At(0.5), n.Reach(), n.Tolerated(0.5), n.Sure()
 		w.Parts = n.Parts(0.5)
@@ -365,6 +365,9 @@ func (p *Plan) tolerances(w *Now) {
 	w.Worst = w.Idle
 	w.Worst.Least, w.Worst.Most = spreadAt(units, off).Least, spreadAt(units, on).Most
 	w.CentreLow, w.CentreHigh = p.AtCentre(off), p.AtCentre(on)
+	if w.Share = math.NaN(); w.Given {
+		return
+	}
 	own := variance(w.Parts)
 	w.Share = own / (own + p.SD*p.SD)
 	if !(w.Share > 0.5) {

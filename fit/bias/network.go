@@ -27,8 +27,8 @@ var (
 //	                  |
 //	                 0 V               trimmer AtGate
 //
-// and InBottom the first with a trimmer as a variable resistor between bottom and 0 V. Nothing flows into the gate.
-// A negative supply gives negative gate voltages.
+// and InBottom the first with a trimmer as a variable resistor between bottom and 0 V.
+// Nothing flows into the gate. A negative supply gives negative gate voltages.
 type Network struct {
 	Supply    float64 // V, with its sign
 	SupplyTol float64 // relative, 0.04 is ± 4 %
@@ -112,6 +112,9 @@ func (n *Network) Setting(v float64) float64 {
 
 // Range is from where to where a voltage lies, V, Low below High by value.
 type Range struct{ Low, High float64 }
+
+// noRange is where nothing is known.
+var noRange = Range{math.NaN(), math.NaN()}
 
 // Holds reports whether v lies in the range, its ends included.
 func (r Range) Holds(v float64) bool { return v >= r.Low-slack && v <= r.High+slack }

@@ -85,3 +85,47 @@ func TestNetworkHolds(t *testing.T) {
 		}
 	})
 }
+
+// TestChoicesAreNearest: no other value of the series in place of one resistor comes
+// nearer to the gate voltage wanted.
+func TestChoicesAreNearest(t *testing.T) {
+	rapid.Check(t, func(t *rapid.T) {
+		ohm := rapid.Float64Range(100, 1e4)
+		n := Network{Supply: 10, Top: ohm.Draw(t, "top"), Bottom: ohm.Draw(t, "bottom")}
+		if rapid.Bool().Draw(t, "trimmed") {
+			n.Trimmer, n.In = rapid.Float64Range(10, 500).Draw(t, "trimmer"), rapid.SampledFrom([]string{AtGate, InBottom}).Draw(t, "in")
+		}
+		s := rapid.SampledFrom(AllSeries).Draw(t, "series")
+		v := rapid.Float64Range(2, 7).Draw(t, "wanted")
+		for _, c := range n.choices(s, v, nil) {
+			if c.Change == ChangeBoth {
+				if change := (c.Network.Top + c.Network.Bottom) / (n.Top + n.Bottom); change < 0.8 || change > 1.2 {
+					t.Fatalf("both: the sum goes to %g of what it was", change)
+				}
+				for _, b := range s.Around(c.Network.Bottom, 12) {
+					m := n
+					m.Bottom = b
+					m, _ = m.nearestTop(s, v)
+					sum := (m.Top + m.Bottom) / (n.Top + n.Bottom)
+					if off := math.Abs(m.At(0.5) - v); sum > 0.8 && sum < 1.2 && off < math.Abs(c.Off)-1.01e-4 {
+						t.Fatalf("%s both: %+v is %g V off, %+v %g V", s, c.Network, c.Off, m, off)
+					}
+				}
+				continue
+			}
+			for _, d := range decades[s] {
+				for exp := 0.0; exp <= 5; exp++ {
+					m := n
+					if r := of(d, exp); c.Change == ChangeTop {
+						m.Top = r
+					} else {
+						m.Bottom = r
+					}
+					if off := math.Abs(m.At(0.5) - v); off < math.Abs(c.Off)-1e-9 {
+						t.Fatalf("%s %s: %+v is %g V off, %+v %g V", s, c.Change, c.Network, c.Off, m, off)
+					}
+				}
+			}
+		}
+	})
+}

@@ -12,7 +12,7 @@ import (
 var (
 	ErrBeyond  = errors.New("the curve ends before the current")
 	ErrRunaway = errors.New("no stable operating point")
-	ErrLine    = errors.New("not a set of devices on one gate line")
+	ErrLine    = errors.New("devices on one line cannot be solved for")
 )
 
 // LineOptions are the conditions of devices on one gate line.
@@ -33,9 +33,10 @@ func (o *LineOptions) hot() bool {
 
 // On is what a device on a line does in one state.
 type On struct {
-	I     float64 // A
-	Power float64 // W, in the device; NaN: V_DS not given
-	Temp  float64 // °C, of the device; NaN: not told
+	I     float64   // A, as solved for
+	Told  fit.Drawn // A, the same as far as anything tells: less than the end of a curve is only that
+	Power float64   // W, in the device; NaN: V_DS not given
+	Temp  float64   // °C, of the device; NaN: not told
 }
 
 // State is a whole line in one state.
@@ -90,27 +91,28 @@ type Member struct {
 //	I_k = f_k(V - I_k R_S - s (T_k - T_0)),  Σ I_k = total,  T_k = sink + I_k (V_DS - I_k R_S) R_th
 //
 // where f_k is the device's own curve (see [fit.Result.Drain]) and s the coefficient of
-// the gate voltage. Cold, T_k = T_0. For a given V each device stands alone; its current is the least
-// that solves the first line, to which it comes when it is switched on. The sum rises with V, which is
-// found by halving. A state without a solution has Err: [ErrRunaway] where heating outruns the resistor
-// ([ErrRunaway] is found as a jump of the current or as no solution up to ten times the total), [ErrBeyond]
-// where a device would have to carry more than its curve tells. Curves are taken at their own V_DS.
+// the gate voltage. Cold, T_k = T_0. For a given V each device stands alone; its current
+// is the least that solves its equation, to which it comes when it is switched on. The
+// sum rises with V, which is found by halving. A state without a solution has Err:
+// [ErrRunaway] where heating outruns the resistors (the sum jumps over the total, or a device finds no solution up
+// to ten times the total), [ErrBeyond] where a device would carry more than its curve
+// tells. Curves are taken at the V_DS at which they were measured.
 //
-// Errors: [ErrLine] where devices are missing or their currents are not told. Checked: TestParalleledAgainstSimulator,
-// TestLineSolves, TestLineExtremes.
+// Errors: [ErrLine] where devices are missing or their currents are not told. Checked:
+// TestParalleledAgainstSimulator, TestLineSolves, TestLineExtremes, TestRunaway.
 func LineOf(members []Member, idle, beta float64, pchannel bool, o LineOptions) (*Line, error) {
 	l := &Line{LineOptions: o}
 	if len(members) < 2 {
-		return nil, fmt.Errorf("%d devices: %w", len(members), ErrLine)
+		return nil, fmt.Errorf("%w: %d devices, two or more are needed", ErrLine, len(members))
 	}
 	if !(o.Total > 0) || o.Source < 0 {
-		return nil, fmt.Errorf("total of %g A, source resistor of %g ohm: %w", o.Total, o.Source, ErrLine)
+		return nil, fmt.Errorf("%w: total of %g A, source resistor of %g Ω", ErrLine, o.Total, o.Source)
 	}
 	var ds []fit.Drain
 	for _, m := range members {
 		d := m.Result.Drain(idle, beta, pchannel)
 		if d.By == "" {
-			return nil, fmt.Errorf("device %s: neither curve nor gain tells its current: %w", m.Name, ErrLine)
+			return nil, fmt.Errorf("%w: neither curve nor gain tells the current of device %s", ErrLine, m.Name)
 		}
 		ds = append(ds, d)
 		l.Names, l.By, l.Gates = append(l.Names, m.Name), append(l.By, d.By), append(l.Gates, m.Result.VgsIdle)
@@ -266,8 +268,11 @@ func (s *solver) state(gate float64, hot bool) State {
 			d.Temp = s.temp(i)
 			inner -= s.o.Tempco * (d.Temp - s.o.Temp)
 		}
-		if s.ds[k].At(inner).Beyond > 0 {
+		switch d.Told = s.ds[k].At(inner); {
+		case d.Told.Beyond > 0:
 			return State{Gate: gate, Err: fmt.Errorf("device %d: %w", k+1, ErrBeyond)}
+		case d.Told.Beyond == 0:
+			d.Told.I = i
 		}
 		out.Devices, out.Total = append(out.Devices, d), out.Total+i
 	}

@@ -124,6 +124,25 @@ func TestLineExtremes(t *testing.T) {
 	}
 }
 
+// TestLineBelowTheCurve: a current below the end of a curve is told as less than that.
+func TestLineBelowTheCurve(t *testing.T) {
+	r := fit.NewResult()
+	for _, i := range []float64{0.1, 0.2, 0.5, 1} {
+		r.Levels = append(r.Levels, fit.Level{I: i, Vg: 4 + math.Sqrt(i)})
+	}
+	strong := device("a", 3, 1.4)
+	l, err := LineOf([]Member{{"a", &strong.Result}, {"b", &r}}, 0.25, nan, false, LineOptions{Total: 0.5, VDS: nan, Rth: nan, Sink: nan, Temp: 25, Tempco: nan})
+	if err != nil || l.Cold.Err != nil {
+		t.Fatal(err, l.Cold.Err)
+	}
+	if d := l.Cold.Devices[1].Told; d.Beyond != -1 || math.Abs(d.I-0.1) > 1e-9 {
+		t.Errorf("%+v", l.Cold.Devices[1])
+	}
+	if d := l.Cold.Devices[0].Told; d.Beyond != 0 || math.Abs(d.I-0.5) > 1e-6 {
+		t.Errorf("%+v", d)
+	}
+}
+
 // TestLineSolves: whatever the devices, the shares sum up to the total, each solves its
 // own equation, cold and hot, and a p-channel line is the mirror.
 func TestLineSolves(t *testing.T) {

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"sort"
 	"strings"
 )
 
@@ -76,27 +77,33 @@ func (s Series) Around(r float64, count int) []float64 {
 	if !(r > 0) || math.IsInf(r, 0) || count < 1 {
 		return nil
 	}
-	var all []float64
+	decade := decades[s]
+	n := len(decade)
+	if n == 0 {
+		return nil
+	}
 	exp := math.Floor(math.Log10(r))
-	for _, e := range []float64{exp - 1, exp, exp + 1} {
-		for _, d := range s.Decade() {
-			all = append(all, of(d, e))
-		}
+	value := func(i int) float64 { // the i-th from the beginning of that decade, below 0 in those before
+		k := (i%n + n) % n
+		return of(decade[k], exp+float64((i-k)/n))
 	}
-	at, found := slices.BinarySearchFunc(all, r, func(v, r float64) int {
-		switch {
-		case v < r*(1-1e-9):
-			return -1
-		case v > r*(1+1e-9):
-			return 1
-		}
-		return 0
-	})
-	if found {
-		at++
+	// The first above r, which may lie just outside the decade, for a logarithm is rounded.
+	above := sort.Search(n+1, func(i int) bool { return value(i) > r*(1+1e-9) })
+	out := make([]float64, 0, 2*count)
+	for i := above - count; i < above+count; i++ {
+		out = append(out, value(i))
 	}
-	return all[max(0, at-count):min(len(all), at+count)]
+	return out
 }
+
+// decades holds the values of every series.
+var decades = func() map[Series][]int {
+	m := map[Series][]int{}
+	for _, s := range AllSeries {
+		m[s] = s.Decade()
+	}
+	return m
+}()
 
 // of is digits, 10 to 91 or 100 to 988, in the decade from 10^exp ohm, divided where
 // the power is negative, so that no noise of 0.1 is left.

@@ -5,6 +5,7 @@ import (
 	"math"
 	"strconv"
 	"strings"
+	"unicode/utf8"
 
 	"gatesill/fit"
 )
@@ -70,6 +71,9 @@ func Ohms(r float64) string {
 	return strconv.FormatFloat(r, 'g', 4, 64) + " Ω"
 }
 
+// supplyWords writes a voltage that was given.
+func supplyWords(v float64) string { return strconv.FormatFloat(v, 'g', 6, 64) + " V" }
+
 // Drawing is the circuit in lines of text, its values with it.
 func (n *Network) Drawing() []string {
 	value := func(r float64) string {
@@ -78,11 +82,11 @@ func (n *Network) Drawing() []string {
 		}
 		return Ohms(r)
 	}
-	head := strconv.FormatFloat(n.Supply, 'g', 5, 64) + " V --[ top " + value(n.Top) + " ]--"
-	blank := strings.Repeat(" ", len(head))
+	head := supplyWords(n.Supply) + " --[ top " + value(n.Top) + " ]--"
+	blank := strings.Repeat(" ", utf8.RuneCountInString(head))
 	if n.In == AtGate {
 		tap := "[ trimmer " + value(n.Trimmer) + " ]"
-		arrow := blank + strings.Repeat(" ", len(tap)/2)
+		arrow := blank + strings.Repeat(" ", utf8.RuneCountInString(tap)/2)
 		return []string{
 			head + tap + "--[ bottom " + value(n.Bottom) + " ]-- 0 V",
 			arrow + "^ wiper",

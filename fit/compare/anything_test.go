@@ -62,7 +62,7 @@ func TestAnyLots(t *testing.T) {
 			}
 			return
 		}
-		if !slices.Contains(verdicts, c.Verdict) || c.Sentence == "" || len(c.Options) != 5 {
+		if !slices.Contains(verdicts, c.Verdict) || c.Sentence == "" || (len(c.Options) != 5) != (c.Paired != nil) {
 			t.Errorf("%q %q", c.Verdict, c.Sentence)
 		}
 		if math.IsNaN(c.Shift) && c.Verdict != TooFew || c.Low > c.High || c.MarginLow > c.MarginHigh || c.P < 0 || c.P > 1 {

@@ -1,7 +1,9 @@
 package compare
 
 import (
+	"fmt"
 	"math"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/stats"
@@ -29,6 +31,37 @@ func (c *comparing) beside() {
 	}
 }
 
+// besideWords says which counts where the verdict without a margin and what stands
+// beside it differ; "" where they do not. A verdict on a margin asks something else.
+func (c *comparing) besideWords() string {
+	o := &c.out
+	alpha := 1 - o.Level
+	var apart, had []string
+	for i, s := range o.Secondary {
+		if i >= 2 || math.IsNaN(s.PAdjusted) { // the first two ask for a shift
+			continue
+		}
+		name, _, _ := strings.Cut(s.Test, ":")
+		had = append(had, name)
+		if s.PAdjusted <= alpha {
+			apart = append(apart, fmt.Sprintf("the test of %s (adjusted %s)", name, pWords(s.PAdjusted)))
+		}
+	}
+	const counts = "; the verdict is that of the primary test alone, which was chosen beforehand: the rest is a reason to measure more"
+	switch {
+	case o.Verdict == NoDifference:
+		if o.Curves != nil && o.Curves.Differs && o.ForTemp == 0 { // the band is without what was taken off for that
+			apart = append(apart, "the band of the curves")
+		}
+		if len(apart) > 0 {
+			return strings.Join(apart, " and ") + " would say that the lots differ" + counts
+		}
+	case o.Verdict == Differs && len(had) > 0 && len(apart) == 0:
+		return "beside it no test of " + strings.Join(had, " or ") + " sees a difference" + counts
+	}
+	return ""
+}
+
 // besideLots compares lots of different devices.
 func (c *comparing) besideLots() {
 	ref, cand := c.ref.x, less(c.cand.x, c.takenOff())
@@ -39,12 +72,14 @@ func (c *comparing) besideLots() {
 	rank := stats.MannWhitney(cand, ref)
 	ks := stats.KolmogorovSmirnov(cand, ref)
 	bf := stats.BrownForsythe(finiteOnly(cand), finiteOnly(ref))
+	f := stats.VarianceRatio(finiteOnly(cand), finiteOnly(ref), c.opt.Level)
 	c.out.Secondary = []Secondary{
 		{Test: "means: Welch's t", Statistic: w.Statistic, P: w.P, Shift: Interval{w.Estimate, w.Low, w.High}},
 		{Test: exactly("ranks: Mann-Whitney, shift of Hodges and Lehmann", rank.Exact), Statistic: rank.Statistic, P: rank.P,
 			Shift: reached(stats.HodgesLehmann(cand, ref, c.opt.Level))},
 		{Test: exactly("distributions: Kolmogorov-Smirnov", ks.Exact), Statistic: ks.Statistic, P: ks.P, Shift: none()},
 		{Test: "spreads: Brown-Forsythe", Statistic: bf.Statistic, P: bf.P, Shift: none()},
+		{Test: "variances: F, for normal values", Statistic: f.Statistic, P: f.P, Shift: none(), Ratio: Interval{f.Estimate, f.Low, f.High}},
 	}
 	if math.IsNaN(s.Ratio) {
 		c.out.SpreadTest = "none: it needs 4 devices a lot, all with a value, that do not all read the same"

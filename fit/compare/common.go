@@ -122,13 +122,14 @@ type shared struct {
 	u               float64 // standard uncertainty; NaN: nothing of it is known
 	session, meters bool    // the lots differ in sessions, in meters
 	missing         bool    // a part that enters is not known
+	tempHeld        bool    // u holds what the temperatures are uncertain by, or one session has one
 }
 
 func sharedOf(ref, cand sharing) shared {
 	s := shared{session: !sameWeights(ref.session, cand.session), meters: !sameWeights(ref.meters, cand.meters)}
 	a, noSession := variance(ref.session, cand.session, ref.tau, cand.tau)
 	b, noMeters := variance(ref.meters, cand.meters, ref.gamma, cand.gamma)
-	s.missing = noSession || noMeters
+	s.missing, s.tempHeld = noSession || noMeters, !noSession
 	s.u = math.Sqrt(a + b)
 	if s.missing && s.u == 0 {
 		s.u = math.NaN()
@@ -161,6 +162,7 @@ func one(float64) float64 { return 1 }
 func (c *comparing) commonOf(ref, cand []*Member) (Common, float64) {
 	s := sharedOf(sharingOf(c.ref.lot, ref, c.opt.By, one), sharingOf(c.cand.lot, cand, c.opt.By, one))
 	out := Common{U: s.u, Basis: s.basis(), OffsetU: math.NaN()}
+	c.tempHeld = s.tempHeld
 	nu := math.Inf(1)
 	if !s.session && !s.meters {
 		return out, nu

@@ -42,7 +42,7 @@ const (
 func (c *comparing) curves() *Band {
 	at, sh := c.shifts()
 	if len(at) == 0 {
-		c.warn(fit.CodeNotAsked, "the curves were not compared: there is no current at which both lots have enough gate voltages")
+		c.warnNoCurves()
 		return nil
 	}
 	b := &Band{Level: c.opt.Level}
@@ -84,6 +84,22 @@ func (c *comparing) curves() *Band {
 	}
 	b.Text = c.bandWords(b, sh, df)
 	return b
+}
+
+// warnNoCurves says what the curves lack: devices, or a current that both lots reach.
+func (c *comparing) warnNoCurves() {
+	if c.opt.Spots { // nobody expects curves of them
+		return
+	}
+	n, what := min(levelsOf(partOf(c.ref.lot)).has, levelsOf(partOf(c.cand.lot)).has), "devices with a curve"
+	if c.pairs != nil {
+		n, what = min(levelsOf(c.pairs.ref).has, levelsOf(c.pairs.cand).has), "pairs with curves"
+	}
+	if n < fewest {
+		c.warn(fit.CodeNTooSmall, fmt.Sprintf("the curves were not compared: they need %d %s on either side, and there are %d", fewest, what, n))
+		return
+	}
+	c.warn(fit.CodeFewPoints, "the curves were not compared: there is no current that enough of them pass in both lots")
 }
 
 // levelShifts are the shifts at several currents without what is common to the lots.
@@ -213,7 +229,7 @@ func widest(b *Band) float64 {
 	return w
 }
 
-// parallelWords says whether the shift changes with the current, by its change from
+// parallelWords finds whether the shift changes with the current, by its change from
 // the lowest current to the highest, from which what the lots share falls out.
 func parallelWords(b *Band, s *levelShifts, df, level float64) string {
 	first, last := b.Points[0], b.Points[len(b.Points)-1]
@@ -222,6 +238,7 @@ func parallelWords(b *Band, s *levelShifts, df, level float64) string {
 	se := math.Sqrt(math.Max(0, s.cov[0][0]+s.cov[k][k]-2*s.cov[0][k]))
 	switch {
 	case se > 0 && math.Abs(d) > stats.UpperT((1-level)/2, df)*se:
+		b.Changes = true
 		return fmt.Sprintf("; it changes with the current, by %s from the lowest to the highest", shiftWords(d))
 	case b.Differs:
 		return "; no change with the current is seen: a parallel shift"
@@ -234,5 +251,5 @@ func fromTo(least, most float64) string {
 	if signed(least) == signed(most) {
 		return shiftWords(least)
 	}
-	return rangeWords(least, most)
+	return signed(least) + " to " + shiftWords(most)
 }

@@ -114,7 +114,7 @@ func TestBandOfShortCurves(t *testing.T) {
 		b.Members[i].Result.Levels = nil
 	}
 	d := compareLots(t, a, b, plain())
-	if d.Curves != nil || !has(&d, fit.CodeNotAsked) {
+	if d.Curves != nil || !has(&d, fit.CodeNTooSmall) {
 		t.Error("curves compared that are not there")
 	}
 }

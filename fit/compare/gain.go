@@ -164,6 +164,14 @@ func groupOf(g []gained) group {
 	return s
 }
 
+// tenths writes percent with a sign and one decimal; 0 has neither.
+func tenths(x float64) string {
+	if text := fmt.Sprintf("%+.1f", x); text != "-0.0" && text != "+0.0" {
+		return text
+	}
+	return "0"
+}
+
 // gainWords says what was found.
 func (c *comparing) gainWords(g *Gain, differs, beyond, missing bool) string {
 	name := lot.NameOf(g.Key)
@@ -171,7 +179,7 @@ func (c *comparing) gainWords(g *Gain, differs, beyond, missing bool) string {
 	if !g.Adjusted {
 		at = "without regard to the threshold"
 	}
-	numbers := fmt.Sprintf("%+.1f %%, %s interval %+.1f to %+.1f %%", g.Percent.Value, levelWords(c.opt.Level), g.Percent.Low, g.Percent.High)
+	numbers := fmt.Sprintf("%s %%, %s interval %s to %s %%", tenths(g.Percent.Value), levelWords(c.opt.Level), tenths(g.Percent.Low), tenths(g.Percent.High))
 	text := fmt.Sprintf("%s the %s of lot %s differs from that of lot %s: %s, %s", at, name, c.cand.lot.Name, c.ref.lot.Name, numbers, pWords(g.P))
 	if !differs {
 		text = fmt.Sprintf("%s no difference of the %s is seen: %s", at, name, numbers)

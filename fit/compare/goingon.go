@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strconv"
 	"strings"
 
 	"gatesill/fit"
@@ -26,9 +27,6 @@ const (
 	ByLimits = "outside-limits"
 	ByMargin = "outside-margin"
 )
-
-// binWidth is the least width of bins that a lot is sorted in.
-const binWidth = 0.05 // V
 
 // goingOn says what follows from each way to go on; it prefers none. The gate
 // voltage of the reference lot is the trimmed mean of those at the idle current,
@@ -88,13 +86,17 @@ func (c *comparing) takeAsItIs(b biases) Option {
 		return o
 	}
 	var known []fit.Drawn
-	unknown := 0
+	unknown, beyond := 0, 0
 	how := map[string]int{}
 	for _, m := range b.candidate {
-		i := m.Result.CurrentAt(b.old+b.off, b.idle, c.opt.Beta, c.ref.lot.PChannel)
+		i := m.Result.CurrentBeyond(b.old+b.off, b.idle, c.opt.Beta, c.ref.lot.PChannel)
 		if math.IsNaN(i.I) {
 			unknown++
 			continue
+		}
+		if i.Beyond > 0 && i.By != fit.ByCurve {
+			beyond++
+			i.Beyond, i.By = 0, fit.ByCurve
 		}
 		known = append(known, i)
 		how[i.By]++
@@ -109,9 +111,13 @@ func (c *comparing) takeAsItIs(b biases) Option {
 	})
 	o.Text = fmt.Sprintf("%s, they would draw %s in the median instead of %s (least %s, greatest %s; %s by %s)", gate,
 		drawnWords(known[(len(known)-1)/2]), amps(b.idle), drawnWords(known[0]), drawnWords(known[len(known)-1]), devices(len(known)), mostOf(how))
+	if beyond > 0 {
+		o.Text += fmt.Sprintf("; %d beyond the end of the curve, carried on by the square law", beyond)
+	}
 	if unknown > 0 {
 		o.Text += fmt.Sprintf("; of %d nothing tells", unknown)
 	}
+	o.Text += c.twoCentres()
 	return o
 }
 
@@ -147,14 +153,38 @@ func (c *comparing) reAdjust(b biases) Option {
 		return o
 	}
 	lo, hi := b.v[0], b.v[len(b.v)-1]
-	o.Text = fmt.Sprintf("new centre %s instead of %s; trimmers must reach from %s to %s for the %s measured", volts(b.new), volts(b.old), volts(lo), volts(hi), devices(len(b.v)))
-	if low, high, ok := nineteenOfTwenty(b.v); ok {
-		o.Text += fmt.Sprintf(", and from %s to %s for 95 %% of the lot with 95 %% confidence if it lies like a normal distribution", volts(low), volts(high))
+	o.Text = fmt.Sprintf("new centre %s instead of %s", volts(b.new), volts(b.old))
+	if volts(b.new) == volts(b.old) {
+		o.Text = fmt.Sprintf("the centre stays at %s", volts(b.old))
+	}
+	o.Text += b.asRead(c)
+	o.Text += fmt.Sprintf("; trimmers must reach from %s to %s for the %s measured", volts(lo), volts(hi), devices(len(b.v)))
+	if c.cand.lot.Populations > 1 {
+		o.Text += c.twoCentres()
+	} else if low, high, ok := nineteenOfTwenty(b.v); ok && (low < lo || high > hi) {
+		o.Text += fmt.Sprintf("; 95 %% of a lot that lies like a normal distribution need %s to %s (95 %% confidence)", volts(low), volts(high))
 	}
 	if b.above > 0 {
 		o.Text += fmt.Sprintf("; %s the idle current and %s more", stand(b.above, "device never reaches", "devices never reach"), map[bool]string{true: "needs", false: "need"}[b.above == 1])
 	}
 	return o
+}
+
+// asRead says how the new centre comes from what was read, where something was taken
+// off.
+func (b *biases) asRead(c *comparing) string {
+	if b.off == 0 {
+		return ""
+	}
+	return fmt.Sprintf(" (read as %s, less the %s that are not the parts')", volts(b.new+b.off), shiftWords(b.off))
+}
+
+// twoCentres is the caution of a lot that is two: its centre is nobody's.
+func (c *comparing) twoCentres() string {
+	if c.cand.lot.Populations < 2 {
+		return ""
+	}
+	return fmt.Sprintf("; with care: lot %s is two populations, and between them may lie no device: go by each of them", c.cand.lot.Name)
 }
 
 // nineteenOfTwenty is the interval that holds 95 % of a normal lot with 95 %
@@ -181,7 +211,13 @@ func (c *comparing) changeResistor(b biases) Option {
 	}
 	o.Text = fmt.Sprintf("the gate voltage of the divider must move by %s, from %s to %s",
 		shiftWords(b.new-b.old), volts(b.old), volts(b.new))
-	if r := c.out.Spread.Value; !math.IsNaN(r) {
+	if volts(b.new) == volts(b.old) {
+		o.Text = fmt.Sprintf("the gate voltage of the divider stays at %s", volts(b.old))
+	}
+	o.Text += b.asRead(c)
+	if c.cand.lot.Populations > 1 {
+		o.Text += c.twoCentres()
+	} else if r := c.out.Spread.Value; !math.IsNaN(r) {
 		o.Text += fmt.Sprintf("; trimmers then need the reach that they had, times %.2f, the ratio of the spreads", r)
 	}
 	return o
@@ -195,10 +231,7 @@ func (c *comparing) sortFirst() Option {
 	for _, m := range c.cand.of {
 		devs = append(devs, lot.Device{Name: m.Name, Result: m.Result})
 	}
-	width := binWidth
-	if s, err := lot.SortInto(devs, lot.SortOptions{By: c.opt.By, Bins: 1}); err == nil && s.SmallestWidth > width {
-		width = math.Ceil(s.SmallestWidth/0.01-1e-9) * 0.01
-	}
+	width := lot.NiceWidth(devs, c.opt.By) // as sort and the page of the lot take it
 	s, err := lot.SortInto(devs, lot.SortOptions{By: c.opt.By, Width: width})
 	if err != nil {
 		o.Text = "it cannot be sorted: " + err.Error()
@@ -207,14 +240,14 @@ func (c *comparing) sortFirst() Option {
 	var parts []string
 	used := 0
 	for _, b := range s.Bins {
+		parts = append(parts, strconv.Itoa(len(b.Devices)))
 		if len(b.Devices) > 0 {
 			used++
-			parts = append(parts, fmt.Sprintf("%d from %s", len(b.Devices), volts(b.Low)))
 		}
 	}
-	o.Text = fmt.Sprintf("%s of %s", stand(used, "bin", "bins"), millivolts(width))
-	if used <= 12 {
-		o.Text += ": " + strings.Join(parts, ", ")
+	o.Text = fmt.Sprintf("they fill %d of %s of %s", used, stand(len(s.Bins), "bin", "bins"), millivolts(width))
+	if len(parts) > 1 && len(parts) <= 12 {
+		o.Text += fmt.Sprintf(", %s from %s up", strings.Join(parts, ", "), volts(s.Bins[0].Low))
 	}
 	if centre := c.out.Centre[0]; !math.IsNaN(c.opt.Margin) && !math.IsNaN(centre) {
 		n := 0
@@ -238,13 +271,22 @@ func (c *comparing) sendBack() Option {
 	case "":
 		o.Text = "no stored rule asks for it"
 	case ByLimits:
+		if c.opt.Judged != "" {
+			o.Text = c.opt.Judged
+			return o
+		}
 		low, high := c.opt.LimitLow, c.opt.LimitHigh
 		if math.IsNaN(low) && math.IsNaN(high) {
-			o.Text = "your stored rule names the limits of the data sheet, and none are known for this quantity at this current"
+			o.Text = "your stored rule names the limits of the data sheet, and none are known for V_GS(th) at this current"
+			return o
+		}
+		th := valuesOf(c.cand.lot, fit.KeyVgsth)
+		if len(th.x) == 0 {
+			o.Text = "your stored rule names the limits of the data sheet, and no V_GS(th) is known that they could be held against"
 			return o
 		}
 		var out []string
-		for i, v := range c.cand.x {
+		for i, v := range th.x {
 			if c.ref.lot.PChannel { // limits are magnitudes, or both negative
 				v, low, high = math.Abs(v), math.Abs(low), math.Abs(high)
 				if low > high {
@@ -252,14 +294,14 @@ func (c *comparing) sendBack() Option {
 				}
 			}
 			if !math.IsInf(v, 0) && (v < low || v > high) {
-				out = append(out, c.cand.of[i].Name)
+				out = append(out, th.of[i].Name)
 			}
 		}
 		limits := limitWords(low, high)
 		if o.Text = kept + "no device is outside " + limits; len(out) > 0 {
-			o.Text = fmt.Sprintf("%s%s of %d outside %s: %s", broken, stand(len(out), "device", "devices"), len(c.cand.x), limits, firstOf(out, 5))
+			o.Text = fmt.Sprintf("%s%s of %d outside %s: %s", broken, stand(len(out), "device", "devices"), len(th.x), limits, firstOf(out, 5))
 		}
-		if n := c.cand.counts.Above; n > 0 {
+		if n := th.counts.Above; n > 0 {
 			o.Text += "; " + neverReach(n) + ", which leaves it open"
 		}
 	case ByMargin:

@@ -59,6 +59,7 @@ func Lots(reference, candidate Lot, opt Options) (Comparison, error) {
 	c.beside()
 	c.out.Curves = c.curves()
 	c.out.Gain = c.gain()
+	c.out.Beside = c.besideWords()
 	if c.pairs == nil { // of the same devices nothing is to be taken, sorted or sent back
 		c.out.Options = c.goingOn()
 	}
@@ -73,6 +74,7 @@ type comparing struct {
 	pairs     *pairs  // nil: not by serial
 	shift     estimate
 	tied      ties
+	tempHeld  bool   // the common error holds what temperatures are uncertain by, or the lots share it
 	whyNot    string // there is no shift to be had: one sentence
 	out       Comparison
 }
@@ -141,7 +143,9 @@ func (c *comparing) primary() {
 	if p := c.pairs; p != nil {
 		c.out.Test = "20 % trimmed mean of the differences by serial, after Tukey and McLaughlin"
 		c.shift = within(trimmedMean(p.d, 0))
-		c.out.Common, nu = c.commonOf(p.ref, p.cand)
+		if c.out.Common = (Common{U: math.NaN(), OffsetU: math.NaN()}); len(p.d) > 0 {
+			c.out.Common, nu = c.commonOf(p.ref, p.cand)
+		}
 	} else {
 		c.out.Test = "Yuen's test on 20 % trimmed means"
 		c.shift = between(refMean, candMean)
@@ -197,6 +201,8 @@ func (c *comparing) takeOff() {
 		return
 	}
 	c.out.ForTemp = c.opt.Tempco * warmer
+	c.out.TempU = c.opt.tempU(warmer, !c.tempHeld)
+	c.shift.with(c.out.TempU, math.Inf(1))
 	c.shift.shift -= c.out.ForTemp
 	c.out.Raw = raw
 }

@@ -30,6 +30,7 @@ func (c *comparing) more() {
 	if math.IsNaN(u) {
 		u = 0
 	}
+	u = math.Hypot(u, o.TempU)
 	what, k := "devices a lot", 2.0
 	var scatter float64 // of one value of a normal lot that is winsorised like this
 	if c.pairs != nil {
@@ -43,7 +44,7 @@ func (c *comparing) more() {
 	}
 	m := c.opt.Margin
 	if limit := tells(m/u, math.Inf(1)); u > 0 && limit < power {
-		o.MoreText = fmt.Sprintf("no number of devices would tell: what the bench adds to one lot and not to the other is uncertain by %s (one standard uncertainty) and no less with more devices; measure both lots in one session on one bench, or control parts with both", millivolts(u))
+		o.MoreText = fmt.Sprintf("no number of devices would tell: what bench and temperature add to one lot and not to the other is uncertain by %s (one standard uncertainty) and no less with more devices; measure both lots in one session on one bench, or control parts with both", millivolts(u))
 		return
 	}
 	if o.Low > 0 || o.High < 0 {
@@ -56,6 +57,12 @@ func (c *comparing) more() {
 		have = len(c.pairs.d)
 	}
 	switch {
+	case math.Abs(o.Shift) > m:
+		o.MoreText = "the shift seen lies outside the margin: more devices would rather show that"
+		if n > have {
+			o.More = n
+			o.MoreText += fmt.Sprintf("; were the lots truly alike, %d %s would show it with a chance of 80 %%", n, what)
+		}
 	case n == 0:
 		o.MoreText = fmt.Sprintf("more than %d %s would be needed", mostDevices, what)
 	case n <= have:
@@ -78,6 +85,13 @@ func tells(margin, df float64) float64 {
 
 // enough is the least number of devices a lot that tells; 0: more than mostDevices.
 func enough(margin, scatter, lots, u float64) int {
+	if lots == 2 && u == 0 {
+		n := stats.YuenEquivalenceSize(0, -margin, margin, scatter, trim, (1-marginLevel)/2, power)
+		if n == 0 || n > mostDevices {
+			return 0
+		}
+		return max(fewest, n)
+	}
 	chance := func(n int) float64 {
 		e := estimate{}
 		sd := scatter * winsorised(n)

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 
+	"gatesill/fit"
 	"gatesill/fit/stats"
 )
 
@@ -44,6 +45,13 @@ func (c *comparing) pairing() *pairs {
 	}
 	c.out.Paired = p.out
 	return p
+}
+
+// SameDevices reports whether two lots hold the same devices, measured twice, as far
+// as serials and values tell by one quantity: as [ByLikeness] pairs them.
+func SameDevices(a, b Lot, by fit.Key) bool {
+	c := comparing{opt: Options{By: by}, ref: valuesOf(&a, by), cand: valuesOf(&b, by)}
+	return c.pairing() != nil
 }
 
 // pairUp finds the serials of both lots. Names that stand twice in a lot, and

@@ -52,7 +52,7 @@ func quickly(t *testing.T, ref, cand *Lot, opt Options) Comparison {
 	c.least = least(c.ref, c.cand)
 	c.pairs = c.pairing()
 	c.primary()
-	c.decide()
+	c.judge() // not how many would tell, which takes longest by far
 	return c.out
 }
 
@@ -239,7 +239,8 @@ func sit(l *Lot, s Sitting, tau, gamma float64) {
 
 // The same parts on a second bench whose meters read 0.3 % more, within their
 // statement of 0.5 %, held against themselves without pairing: what is the bench's
-// is not called a difference of the lots. Without the common error it always would.
+// is not called a difference of the lots. By serial and without the common error it
+// always would, and without pairing wherever 9 mV stand out of the scatter of the lots.
 func TestSimulatedSecondBench(t *testing.T) {
 	n := runs()
 	cell := uint64(0)
@@ -247,7 +248,7 @@ func TestSimulatedSecondBench(t *testing.T) {
 		for _, sd := range []float64{0.010, 0.080} {
 			cell++
 			d := draws(4, cell)
-			differs, without, drawn := 0.0, 0.0, 0.0
+			differs, without, serial, drawn := 0.0, 0.0, 0.0, 0.0
 			for range n {
 				a := d.lot("A", size, 3, sd)
 				second := func(gain float64) *Lot {
@@ -258,27 +259,38 @@ func TestSimulatedSecondBench(t *testing.T) {
 					return &b
 				}
 				gamma := 3 * 0.005 / math.Sqrt(3)
-				judge := func(b *Lot, gamma float64) bool {
+				judge := func(b *Lot, gamma float64, how Pairing) bool {
 					sit(a, Sitting{"1", "m"}, 0, gamma)
 					sit(b, Sitting{"2", "n"}, 0, gamma)
-					return quickly(t, a, b, plain()).Verdict == Differs
+					opt := plain()
+					opt.Pairing = how
+					return quickly(t, a, b, opt).Verdict == Differs
 				}
 				b := second(0.003)
-				if judge(b, gamma) {
+				if judge(b, gamma, Never) {
 					differs++
 				}
-				if judge(b, 0) {
+				if judge(b, 0, Never) {
 					without++
 				}
+				if judge(b, 0, BySerial) {
+					serial++
+				}
 				// Both benches anywhere within their statements.
-				if judge(second(0.005*(2*d.Float64()-1)-0.005*(2*d.Float64()-1)), gamma) {
+				if judge(second(0.005*(2*d.Float64()-1)-0.005*(2*d.Float64()-1)), gamma, Never) {
 					drawn++
 				}
 			}
 			N := float64(n)
-			t.Logf("%2d parts, sd %.0f mV: gain of 0.3 %% called a difference %.2f %% (without the common error %.1f %%); gains drawn %.2f %%", size, sd*1e3, 100*differs/N, 100*without/N, 100*drawn/N)
+			t.Logf("%2d parts, sd %.0f mV: gain of 0.3 %% called a difference %.2f %% (without the common error %.1f %%, by serial %.1f %%); gains drawn %.2f %%", size, sd*1e3, 100*differs/N, 100*without/N, 100*serial/N, 100*drawn/N)
 			if differs/N > 0.05 || drawn/N > bar(0.05, n) {
 				t.Errorf("called a difference %.4f, drawn %.4f, want at most 0.05", differs/N, drawn/N)
+			}
+			if serial/N < 0.9 {
+				t.Errorf("by serial without the common error called a difference %.4f, want more than 0.9: nothing is tried", serial/N)
+			}
+			if size == 40 && sd < 0.02 && without/N < 0.9 {
+				t.Errorf("without the common error called a difference %.4f, want more than 0.9", without/N)
 			}
 		}
 	}

@@ -58,11 +58,14 @@ type Options struct {
 	Margin        float64 // V, largest shift that does not matter; NaN: none
 	MarginSet     string  // Before, After or None
 	Pairing       Pairing
+	Spots         bool    // no sweep of either lot is a curve: none are missed
 	Repeatability float64 // V, standard deviation of measuring one device again, inserted anew; NaN: not known
 	Tempco        float64 // V/K at the current compared at, taken off the shift where temperatures are known; NaN: none
+	TempcoU       float64 // V/K, its standard uncertainty; 0 or NaN: [SlopeShare] of it
 	Beta          float64 // A/V², gain factor for lots whose curves were not measured; NaN: none
-	LimitLow      float64 // V, data-sheet limits of the quantity; NaN: none
+	LimitLow      float64 // V, data-sheet limits of V_GS(th), whatever is compared; NaN: none
 	LimitHigh     float64
+	Judged        string // what a specification says of the rule ByLimits; "": LimitLow and LimitHigh decide
 	SendBack      string // the user's stored rule: "", "outside-limits" or "outside-margin"
 }
 
@@ -103,6 +106,7 @@ type Secondary struct {
 	Shift     Interval // V, that the test goes with, at the level of the comparison; NaN: none
 	P         float64  // two-sided; NaN: could not be had
 	PAdjusted float64
+	Ratio     Interval // of variances, candidate over reference, that the test goes with; zero: none
 }
 
 // Common is the error that whole lots share through session and meters, as it
@@ -130,6 +134,7 @@ type Band struct {
 	Level    float64
 	Critical float64 // multiple of the standard error used
 	Differs  bool    // somewhere the band leaves 0 out
+	Changes  bool    // the shift changes from the lowest current to the highest
 	Text     string  // one sentence
 }
 
@@ -175,11 +180,13 @@ type Comparison struct {
 	MarginSet            string
 	Verdict              Verdict
 	Sentence             string  // the verdict in one sentence, with its numbers
+	Beside               string  // where primary and secondary tests or curves differ: which counts; "": they do not
 	NotExcluded          float64 // V, largest shift that the interval does not exclude
 	More                 int     // devices a lot that would tell; 0: no number given
 	MoreText             string  // what that number assumes, or why there is none
 	Raw                  float64 // V, shift before control parts or temperature were taken off; NaN: nothing was
 	ForTemp              float64 // V, taken off the shift because the lots were not equally warm; 0: nothing was
+	TempU                float64 // V, standard uncertainty of what was taken off for the temperature, in the interval; 0: nothing was
 	Spread               Interval
 	SpreadTest           string
 	Secondary            []Secondary
@@ -221,9 +228,9 @@ type Trend struct {
 	By          fit.Key
 	Lots        []TrendLot // ascending by At; lots without a time last, by name
 	Untimed     bool       // some lot has no time: the order is not known
-	Centre      float64    // V, mean of the lots' centres
+	Centre      float64    // V, mean of the centres of the lots with a time; NaN: none
 	Low, High   float64    // V, control limits by the moving range of the centres; NaN below three lots
-	Provisional bool       // fewer than 20 lots
+	Provisional bool       // fewer than 20 lots that the limits rest on
 	Pairs       []PairOfLots
 	Text        []string
 }

@@ -3,6 +3,7 @@ package compare
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"gatesill/fit"
 )
@@ -16,27 +17,73 @@ func (c *comparing) decide() {
 		c.moreWithoutShift()
 		return
 	}
+	c.judge()
+	if o.Verdict == TooFew {
+		c.more()
+		switch {
+		case math.Abs(o.Shift) > c.opt.Margin:
+			o.Sentence += "; the shift seen lies outside it, and more devices would rather show that"
+		case o.MoreText != "":
+			o.Sentence += "; " + o.MoreText
+		}
+	}
+	o.Sentence += c.benchWords() + c.offWords() + c.pairWords() + c.populationWords()
+}
+
+// judge finds the verdict of a shift that there is.
+func (c *comparing) judge() {
 	if math.IsNaN(c.opt.Margin) {
 		c.decideByZero()
 	} else {
 		c.decideByMargin()
 	}
-	o.Sentence += c.offWords() + c.pairWords() + c.populationWords()
 }
 
 // decideByZero is the verdict without a margin.
 func (c *comparing) decideByZero() {
 	o := &c.out
 	interval := levelWords(o.Level) + " interval " + rangeWords(o.Low, o.High)
+	if c.pairs != nil {
+		c.decidePairsByZero(interval)
+		return
+	}
 	if o.Low > 0 || o.High < 0 {
 		o.Verdict = Differs
 		o.Sentence = fmt.Sprintf("lot %s needs %s %s gate voltage than lot %s: shift %s, %s, %s",
-			o.Candidate, millivolts(math.Abs(o.Shift)), c.higher(o.Shift), o.Reference, shiftWords(o.Shift), interval, pWords(o.P))
+			o.Candidate, millivolts(math.Abs(o.Shift)), c.higher(o.Shift), o.Reference, shiftWithin(o.Shift, o.Low, o.High), interval, pWords(o.P))
 		return
 	}
 	o.Verdict = NoDifference
 	o.Sentence = fmt.Sprintf("no difference seen between lot %s and lot %s: shift %s, %s; a shift of up to %s is not excluded",
-		o.Candidate, o.Reference, shiftWords(o.Shift), interval, millivolts(o.NotExcluded))
+		o.Candidate, o.Reference, shiftWithin(o.Shift, o.Low, o.High), interval, millivolts(o.NotExcluded))
+}
+
+// decidePairsByZero is the verdict without a margin on the same devices, read twice:
+// nothing is said of lots.
+func (c *comparing) decidePairsByZero(interval string) {
+	o := &c.out
+	if o.Low > 0 || o.High < 0 {
+		o.Verdict = Differs
+		o.Sentence = fmt.Sprintf("the same devices read %s %s in lot %s than in lot %s: shift %s, %s, %s",
+			millivolts(math.Abs(o.Shift)), c.higher(o.Shift), o.Candidate, o.Reference, shiftWithin(o.Shift, o.Low, o.High), interval, pWords(o.P))
+		return
+	}
+	o.Verdict = NoDifference
+	o.Sentence = fmt.Sprintf("no difference seen between the readings of the same devices in lot %s and lot %s: shift %s, %s; a shift of up to %s is not excluded",
+		o.Candidate, o.Reference, shiftWithin(o.Shift, o.Low, o.High), interval, millivolts(o.NotExcluded))
+}
+
+// benchWords says of the same devices where a shift that all share comes from.
+func (c *comparing) benchWords() string {
+	if o := &c.out; c.pairs == nil || !(o.Low > 0 || o.High < 0) {
+		return ""
+	}
+	// The next step of that warning, the same parts measured with both, is what was done.
+	c.out.Warnings = slices.DeleteFunc(c.out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown })
+	if !math.IsNaN(c.out.Raw) {
+		return "; what all of them share is the bench or the session rather than the parts"
+	}
+	return "; what all of them share is the bench, the temperature or the session rather than the parts"
 }
 
 // decideByMargin is the verdict with a margin.
@@ -50,17 +97,13 @@ func (c *comparing) decideByMargin() {
 	switch {
 	case o.MarginLow >= -m && o.MarginHigh <= m:
 		o.Verdict = InsideMargin
-		o.Sentence = fmt.Sprintf("the shift of %s lies inside the %s, and so does all of %s", shiftWords(o.Shift), margin, interval)
+		o.Sentence = fmt.Sprintf("the shift of %s lies inside the %s, and so does all of %s", shiftWithin(o.Shift, o.MarginLow, o.MarginHigh), margin, interval)
 	case o.MarginLow > m || o.MarginHigh < -m:
 		o.Verdict = OutsideMargin
-		o.Sentence = fmt.Sprintf("the shift of %s lies outside the %s, and so does all of %s", shiftWords(o.Shift), margin, interval)
+		o.Sentence = fmt.Sprintf("the shift of %s lies outside the %s, and so does all of %s", shiftWithin(o.Shift, o.MarginLow, o.MarginHigh), margin, interval)
 	default:
 		o.Verdict = TooFew
-		o.Sentence = fmt.Sprintf("too few to tell: the shift is %s, and %s, lies partly inside and partly outside the %s", shiftWords(o.Shift), interval, margin)
-		c.more()
-		if o.MoreText != "" {
-			o.Sentence += "; " + o.MoreText
-		}
+		o.Sentence = fmt.Sprintf("too few to tell: the shift is %s, and %s, lies partly inside and partly outside the %s", shiftWithin(o.Shift, o.MarginLow, o.MarginHigh), interval, margin)
 	}
 }
 
@@ -72,8 +115,8 @@ func (c *comparing) offWords() string {
 		return fmt.Sprintf("; %s of control parts were taken off (%s), before that the shift was %s",
 			shiftWords(o.Common.Offset), stand(o.Common.Controls, "part", "parts"), shiftWords(o.Raw))
 	case !math.IsNaN(o.Raw):
-		return fmt.Sprintf("; %s were taken off for the temperature (%.1f °C against %.1f °C at %s mV/K), before that the shift was %s",
-			shiftWords(o.ForTemp), c.cand.lot.Temp, c.ref.lot.Temp, signed(c.opt.Tempco), shiftWords(o.Raw))
+		return fmt.Sprintf("; %s were taken off for the temperature (%.1f °C against %.1f °C at %s mV/K%s), before that the shift was %s",
+			shiftWords(o.ForTemp), c.cand.lot.Temp, c.ref.lot.Temp, signed(c.opt.Tempco), c.tempUWords(), shiftWords(o.Raw))
 	}
 	return ""
 }
@@ -84,7 +127,7 @@ func (c *comparing) pairWords() string {
 		return ""
 	}
 	own := c.pairs.out.Own
-	return fmt.Sprintf("; the %d pairs alone, without what the bench adds, say %s (%s)", c.pairs.out.Pairs, shiftWords(own.Value), rangeWords(own.Low, own.High))
+	return fmt.Sprintf("; the %d pairs alone, without what the bench adds, say %s (%s)", c.pairs.out.Pairs, shiftWithin(own.Value, own.Low, own.High), rangeWords(own.Low, own.High))
 }
 
 // populationWords says where a lot is two.

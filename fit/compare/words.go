@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"strconv"
+	"strings"
 )
 
 // volts writes a gate voltage.
@@ -17,14 +18,22 @@ func digits(v float64) int {
 	return 0
 }
 
-// millivolts writes a width, without a sign where it is above 0.
-func millivolts(v float64) string { return fmt.Sprintf("%.*f mV", digits(v), v*1e3) }
+// millivolts writes a width, without a sign where it is above 0; one far below a
+// millivolt in µV.
+func millivolts(v float64) string {
+	if a := math.Abs(v); a > 0 && a < 0.995e-3 {
+		return strconv.FormatFloat(v*1e6, 'f', 0, 64) + " µV"
+	}
+	return fmt.Sprintf("%.*f mV", digits(v), v*1e3)
+}
 
 // shiftWords writes a shift, always with its sign.
 func shiftWords(v float64) string { return signed(v) + " mV" }
 
-func signed(v float64) string {
-	s := strconv.FormatFloat(v*1e3, 'f', digits(v), 64)
+func signed(v float64) string { return signedTo(v, digits(v)) }
+
+func signedTo(v float64, decimals int) string {
+	s := strconv.FormatFloat(v*1e3, 'f', decimals, 64)
 	if f, err := strconv.ParseFloat(s, 64); err == nil && f == 0 {
 		return "0"
 	}
@@ -35,7 +44,28 @@ func signed(v float64) string {
 }
 
 // rangeWords writes the ends of an interval of shifts.
-func rangeWords(low, high float64) string { return signed(low) + " to " + signed(high) + " mV" }
+func rangeWords(low, high float64) string {
+	d := digitsOf(low, high)
+	return signedTo(low, d) + " to " + signedTo(high, d) + " mV"
+}
+
+// shiftWithin writes a shift with the digits of its interval.
+func shiftWithin(v, low, high float64) string { return signedTo(v, digitsOf(low, high)) + " mV" }
+
+// digitsOf is how many decimals of a millivolt an interval allows: as many as leave
+// two digits of a quarter of it, which is about the standard error.
+func digitsOf(low, high float64) int {
+	u := (high - low) / 4 * 1e3
+	if !(u > 0) || math.IsInf(u, 0) {
+		return digits(math.Max(math.Abs(low), math.Abs(high)))
+	}
+	text := strconv.FormatFloat(u, 'e', 1, 64) // so that 0.996 counts as 1.0
+	exp, err := strconv.Atoi(text[strings.IndexByte(text, 'e')+1:])
+	if err != nil {
+		return 1
+	}
+	return min(max(0, 1-exp), 4)
+}
 
 // levelWords writes a level of confidence.
 func levelWords(level float64) string {

@@ -59,10 +59,35 @@ func DriftsOf(ms []Measuring, r Repeatability) []Drift {
 		}
 	}
 	for i := range out {
-		out[i].PAdjusted = math.Min(1, out[i].P*float64(tried))
+		out[i].PAdjusted, out[i].Tried = math.Min(1, out[i].P*float64(tried)), tried
 		out[i].say()
 	}
 	return out
+}
+
+// Blind reports whether the devices were measured once each, so that no drift was
+// seen and only a large one would have been.
+func (d *Drift) Blind() bool { return !math.IsNaN(d.P) && !d.Seen() && !d.Again }
+
+// Large is the drift over the sitting that would have been seen at least, V; NaN where
+// it could not be had.
+func (d *Drift) Large() float64 {
+	half := math.Max(math.Abs(d.PerPlace.Low), math.Abs(d.PerPlace.High)) * float64(d.Measurings-1)
+	if math.IsInf(half, 0) {
+		return math.NaN()
+	}
+	return half
+}
+
+// pText is the probability of no drift, with what it is adjusted for.
+func (d *Drift) pText() string {
+	if d.Tried > 1 && d.PAdjusted < 1 {
+		return fmt.Sprintf("p %s, adjusted for %d sessions", pWords(d.PAdjusted), d.Tried)
+	}
+	if d.Tried > 1 {
+		return fmt.Sprintf("p 1, adjusted for %d sessions", d.Tried)
+	}
+	return "p " + pWords(d.PAdjusted)
 }
 
 // Seen reports whether the drift is more than chance makes (5 % over all
@@ -169,13 +194,13 @@ func (d *Drift) say() {
 	switch {
 	case math.IsNaN(d.P):
 	case d.Seen() && d.Again:
-		d.Text = fmt.Sprintf("the same devices read %s from the first place to the last (p %s): the bench drifts; without that a device put in again reads the same to %s", signed(d.Over), pWords(d.PAdjusted), volts(d.Rest))
+		d.Text = fmt.Sprintf("the same devices read %s from the first place to the last (%s): the bench drifts; without that a device put in again reads the same to %s", signed(d.Over), d.pText(), volts(d.Rest))
 	case d.Seen():
-		d.Text = fmt.Sprintf("the values move by %s along the order (p %s): the bench drifts, or the parts lay in that order; put some in again to tell", signed(d.Over), pWords(d.PAdjusted))
-	case !d.Again:
+		d.Text = fmt.Sprintf("the values move by %s along the order (%s): the bench drifts, or the parts lay in that order; put some in again to tell", signed(d.Over), d.pText())
+	case d.Blind():
 		d.Text = "no drift seen, but devices that were measured once each would show a large one only" + d.atLeast() + ": put the first one in again at the end"
 	default:
-		d.Text = fmt.Sprintf("no drift seen (%s, p %s)", d.overWords(), pWords(d.PAdjusted))
+		d.Text = fmt.Sprintf("no drift seen (%s, %s)", d.overWords(), d.pText())
 	}
 	if f := d.First; f != nil {
 		text := fmt.Sprintf("%s, the first, read %s when put in again at place %d", f.Device, signed(f.Change), f.Place)
@@ -197,11 +222,10 @@ func (d *Drift) say() {
 
 // atLeast says what drift would have been seen.
 func (d *Drift) atLeast() string {
-	half := math.Max(math.Abs(d.PerPlace.Low), math.Abs(d.PerPlace.High)) * float64(d.Measurings-1)
-	if math.IsNaN(half) || math.IsInf(half, 0) {
+	if math.IsNaN(d.Large()) {
 		return ""
 	}
-	return " (of some " + volts(half) + ")"
+	return " (of some " + volts(d.Large()) + ")"
 }
 
 func (d *Drift) overWords() string {

@@ -19,13 +19,16 @@ import (
 // two together where those stand out (p < 0.25, common practice), else against both
 // pooled. Interval: Tukey's and Williams's for one component.
 //
-// Operators (and fixtures) with one sitting each are the sittings; with several,
-// one-way analysis of variance of what the sittings read off the mean. Sittings are
-// compared through devices they share; those that share none with the rest are
-// left out, and so is a factor with fewer than two levels.
+// Operators (and fixtures) are compared on the devices that more than one of them
+// measured, and on no other: what one of them alone read, a control part at several
+// dates for instance, says nothing of the other. With one sitting each they are the
+// sittings; with several, one-way analysis of variance of what the sittings read off
+// the mean. Sittings are compared through devices they share; those that share none
+// with the rest are left out, and so is a factor with fewer than two levels.
 //
 // Source: Henderson's method 3 (Biometrics 9 (1953) 226-252) and the interval of
-// Tukey and Williams (from memory). Checked: TestFactorsByHand, TestFactorsSimulated.
+// Tukey and Williams (from memory). Checked: TestFactorsByHand, TestFactorsSimulated,
+// TestFactorsOfSharedDevices.
 func factors(ms []Measuring, cells []cell) []Factor {
 	sit := sittingsOf(ms)
 	link := linkedCells(cells)
@@ -35,32 +38,36 @@ func factors(ms []Measuring, cells []cell) []Factor {
 	}
 	session := bySitting(link, names)
 	var out []Factor
+	var compared [][]string // sittings behind each
 	for _, f := range []struct {
 		name string
 		of   func(sitting) string
 	}{{"operator", func(s sitting) string { return s.operator }}, {"fixture", func(s sitting) string { return s.fixture }}} {
+		own := linkedCells(byMore(cells, func(sitting string) string { return f.of(sit[sitting]) }))
+		among := levelsOf(own)
 		group := map[string]string{}
 		levels := map[string]bool{}
-		for _, n := range names {
+		for _, n := range among {
 			group[n] = f.of(sit[n])
 			levels[group[n]] = true
 		}
-		if len(levels) < 2 || levels[""] {
+		if len(levels) < 2 {
 			continue
 		}
-		factor := session.factor
-		if len(levels) < len(names) {
-			factor = grouped(session, group)
+		fitted := bySitting(own, among)
+		factor := fitted.factor
+		if len(levels) < len(among) {
+			factor = grouped(fitted, group)
 		} else {
-			factor.Levels = slices.Clone(factor.Levels)
 			for i := range factor.Levels {
 				factor.Levels[i].Name = group[factor.Levels[i].Name]
 			}
 		}
 		factor.Name = f.name
 		out = append(out, factor)
+		compared = append(compared, among)
 	}
-	if len(out) == 2 && sameGroups(names, sit) {
+	if len(out) == 2 && slices.Equal(compared[0], compared[1]) && sameGroups(compared[0], sit) {
 		out[0].With, out[1].With = out[1].Name, out[0].Name
 	}
 	if len(out) == 0 || !slices.ContainsFunc(out, func(f Factor) bool { return len(f.Levels) == len(names) }) {
@@ -68,6 +75,21 @@ func factors(ms []Measuring, cells []cell) []Factor {
 		out = append(out, session.factor)
 	}
 	return out
+}
+
+// byMore keeps the cells of devices that more than one level measured, and of these
+// the cells of which the level is known.
+func byMore(cells []cell, of func(sitting string) string) []cell {
+	levels := map[string]map[string]bool{} // by device
+	for _, c := range cells {
+		if l := of(c.sitting); l != "" {
+			if levels[c.device] == nil {
+				levels[c.device] = map[string]bool{}
+			}
+			levels[c.device][l] = true
+		}
+	}
+	return slices.DeleteFunc(slices.Clone(cells), func(c cell) bool { return of(c.sitting) == "" || len(levels[c.device]) < 2 })
 }
 
 // sitting is who measured where.

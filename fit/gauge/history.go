@@ -7,6 +7,7 @@ import (
 	"slices"
 	"time"
 
+	"gatesill/fit"
 	"gatesill/fit/stats"
 )
 
@@ -32,6 +33,11 @@ const (
 // HistoryOf compares for each device its last occasion with its first, devices
 // with the same two occasions together, the largest group first.
 //
+// Where who measured, or in which fixture, is known of both occasions, like is compared
+// with like: of each device only what the same operator read in the same fixture at
+// both, each of several with equal weight. Where none did at both, that is said, and
+// what is common to all may be theirs.
+//
 // The change common to all is the median; its interval rests on the order of the
 // changes. Corrected: value - tempco·(T - T first), by each device's own
 // temperatures. FromDiffs: 1.4826 × MAD of the changes about their median, over √2.
@@ -46,7 +52,7 @@ const (
 //
 // Controls count like others. Source: Bonferroni's correction; Rosner
 // (1983), see [stats.GeneralizedESD]. Checked: TestHistoryHalfAYear,
-// TestHistoryLimit, TestHistoryFalseAlarms.
+// TestHistoryLimit, TestHistoryFalseAlarms, TestHistoryByOperators.
 func HistoryOf(ms []Measuring, o HistoryOptions) []History {
 	ms = withValue(ms)
 	slices.SortStableFunc(ms, func(a, b Measuring) int { return cmp.Compare(a.Rank, b.Rank) })
@@ -125,25 +131,34 @@ func (o *Occasion) take(t float64) {
 // changeOf is the change of one device; weight is the variance of the change in
 // units of that between two single insertions.
 func changeOf(list []Measuring, from, to string, h *History, tempco float64) (c Change, weight float64) {
-	var n, value, temp [2]float64
+	var at [2][]Measuring
 	for _, m := range list {
-		k := 0
 		switch m.Occasion {
 		case to:
-			k = 1
+			at[1] = append(at[1], m)
 			h.To.take(m.Temp)
 		case from:
+			at[0] = append(at[0], m)
 			h.From.take(m.Temp)
-		default:
-			continue
 		}
-		n[k]++
-		value[k], temp[k] = value[k]+m.Value, temp[k]+m.Temp
 	}
-	c.First, c.Last = value[0]/n[0], value[1]/n[1]
+	groups := h.likeWithLike(at)
+	of := float64(len(groups))
+	var mean, temp [2]float64
+	for _, g := range groups {
+		for k, list := range g {
+			n, value, degrees := float64(len(list)), 0.0, 0.0
+			for _, m := range list {
+				value, degrees = value+m.Value, degrees+m.Temp
+			}
+			mean[k], temp[k] = mean[k]+value/n/of, temp[k]+degrees/n/of
+			weight += 1 / n / (of * of) / 2
+		}
+	}
+	c.First, c.Last = mean[0], mean[1]
 	c.Raw = c.Last - c.First
-	c.Corrected = c.Raw - tempco*(temp[1]/n[1]-temp[0]/n[0])
-	return c, (1/n[0] + 1/n[1]) / 2
+	c.Corrected = c.Raw - tempco*(temp[1]-temp[0])
+	return c, weight
 }
 
 // judge works out what is common to all and which device moved by itself.
@@ -310,18 +325,19 @@ func (h *History) say() {
 	case !math.IsNaN(h.Corrected.Value) && !h.Moved():
 		add("all together: %s as read, %s%s after %s: the temperature, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), between(h.Corrected), h.coefficient())
 	case !math.IsNaN(h.Corrected.Value):
-		add("all together: %s as read, %s%s after %s: common to all, so the bench or the coefficient, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), between(h.Corrected), h.coefficient())
+		add("all together: %s as read, %s%s after %s: common to all, so the bench%s or the coefficient, not the parts", signed(h.Raw.Value), signed(h.Corrected.Value), between(h.Corrected), h.coefficient(), h.orWho())
 	case h.Moved():
-		add("all together: %s: common to all, so the bench or the temperature, not the parts", raw)
+		add("all together: %s: common to all, so the bench%s or the temperature, not the parts", raw, h.orWho())
 	default:
 		add("all together: %s, no more than chance", raw)
 	}
+	h.Texts = append(h.Texts, h.whoWords()...)
 	if math.IsNaN(h.Corrected.Value) {
 		switch {
 		case !math.IsNaN(h.Tempco):
 			add("not corrected for temperature: that of some readings is not known")
 		case math.IsNaN(h.From.TempLow) || math.IsNaN(h.To.TempLow):
-			add("temperatures are not all known; a power part changes by some -2 to -8 mV/K (common practice, no source)")
+			add("temperatures are not all known; a power part changes by some " + fit.UsualSlope)
 		case math.Abs(warmer) >= 0.5:
 			add("measured at other temperatures, and not corrected: give the coefficient of the part, for instance --tempco -4mV/K")
 		}

@@ -124,6 +124,7 @@ type Drift struct {
 	Rest       float64  // V, repeatability with the drift taken out; NaN unless Again
 	P          float64  // of no drift
 	PAdjusted  float64  // corrected for the number of sittings
+	Tried      int      // sittings that it is corrected for
 	Text       string   // one sentence
 	First      *Again   // nil: the first device was not put in again at the end
 }
@@ -174,9 +175,17 @@ type History struct {
 	Sigma      float64  // V, repeatability that the limits rest on; NaN: none
 	SigmaDF    float64
 	SigmaBasis string
-	LimitOne   float64 // V, for one device alone: 2·√2·sigma, less for means of several insertions
-	Limit      float64 // V, corrected for the number of devices; NaN: too few
+	LimitOne   float64  // V, for one device alone: 2·√2·sigma, less for means of several insertions
+	Limit      float64  // V, corrected for the number of devices; NaN: too few
+	LeftOut    []string // who, or which fixture, measured at one of the two only and is left out here
+	Apart      []Apart  // what is not alike of the two, with none in common
 	Texts      []string
+}
+
+// Apart is that the operators, or the fixtures, of two occasions are all different.
+type Apart struct {
+	Name     string // "operator", "fixture"
+	From, To []string
 }
 
 // Occasion is one date (or sitting) of a history.

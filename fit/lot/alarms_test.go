@@ -158,8 +158,8 @@ func (k lotKind) alarms(n, runs int) (either, split int) {
 	return either, split
 }
 
-// At most 2 % of clean lots of any size may get any flag for standing apart or be
-// called two populations. So many lots are looked at here that a rate of 2 %
+// Whatever their number of devices, no more than 2 in 100 lots without a fault may be
+// flagged at all: a device standing apart, or two populations. So many lots are looked at here that a rate of 2 %
 // exceeds the bound once in a thousand cases.
 func TestFalseAlarms(t *testing.T) {
 	kinds := []lotKind{

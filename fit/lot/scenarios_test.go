@@ -114,7 +114,7 @@ func TestMixedBag(t *testing.T) {
 			t.Errorf("limit %v flags %q within %v, want none: 8 of 25 are no minority", k, flagged(s), s.Limits)
 		}
 		want := "two populations by V_GS(th): 8 devices at 2.253 V to 2.524 V and 17 devices at 3.009 V to 3.214 V with a gap of 485 mV between them, " +
-			"and transconductance at the idle current parts them in the same way (score 53.4, bar 21.2: fewer than 1 % of lots of one population pass it); this is not evidence of origin: stop, ask the source, measure all devices"
+			"and transconductance at the idle current parts them in the same way (evidence 53.4, where 21.2 is needed: fewer than 1 % of lots of one population have as much); this is not evidence of origin: stop, ask the source, measure all devices"
 		if s.Split.Text != want {
 			t.Errorf("split says\n%s\nwant\n%s", s.Split.Text, want)
 		}

@@ -77,6 +77,24 @@ type Specification struct {
 	Broken      []string // names of the devices that break the rule, those judged Fail; nil: not broken
 }
 
+// NoAbsolute is why a device has no verdict whose guard band cannot be had.
+const NoAbsolute = "its absolute uncertainty is not known, and the guard band is a multiple of it"
+
+// NoRoom reports whether the guard band at both limits takes up all between them, for
+// every device, so that none can pass.
+func (s *Specification) NoRoom() bool {
+	window, some := s.High-s.Low, false
+	for _, j := range s.Devices {
+		if math.IsNaN(j.Guard) {
+			continue
+		}
+		if some = true; !(2*j.Guard > window+2*limitSlack) {
+			return false
+		}
+	}
+	return some
+}
+
 // limitSlack, V, is left so that a limit itself is inside, in spite of rounding.
 const limitSlack = 1e-6
 
@@ -217,7 +235,7 @@ func (o *SpecOptions) judge(d *Device, least, most float64) Judgement {
 		return j
 	}
 	if math.IsNaN(j.Guard) {
-		j.Why = "its absolute uncertainty is not known, and the guard band is a multiple of it"
+		j.Why = NoAbsolute
 		return j
 	}
 	inside := math.Inf(1)

@@ -268,3 +268,19 @@ func TestSpecOfAnything(t *testing.T) {
 		}
 	})
 }
+
+// A guard band of more than half the window leaves nothing to pass in; of half of it
+// the middle is left.
+func TestNoRoom(t *testing.T) {
+	for guard, want := range map[float64]bool{0.1: false, 0.15: false, 0.151: true, 0.5: true} {
+		d := Device{Name: "A", Result: fit.NewResult()}
+		d.Result.State, d.Result.Vgsth.Value = fit.Measured, 2.85
+		s := SpecOf([]Device{d}, SpecOptions{Min: 2.7, Max: 3.0, Guard: Guard{guard, "V"}})
+		if s.NoRoom() != want || (s.Count[Pass] == 0) != want {
+			t.Errorf("guard %v V: no room %v, %v", guard, s.NoRoom(), s.Count)
+		}
+		if s := SpecOf([]Device{d}, SpecOptions{Min: math.NaN(), Max: 3.0, Guard: Guard{guard, "V"}}); s.NoRoom() {
+			t.Errorf("guard %v V: no room with one limit", guard)
+		}
+	}
+}

@@ -211,7 +211,7 @@ func (l *judge) evenWarning() []fit.Warning {
 		return nil
 	}
 	c := l.groups.col
-	text := "neither group is small enough to be the odd one (a quarter of the lot), so no device is flagged for standing apart"
+	text := "neither group is small enough to be the odd one (a quarter of the lot), so neither is flagged as a group"
 	k := l.opt.K
 	if k == 0 && len(c.sorted) >= fewest {
 		k = DefaultLimit(len(c.sorted), 1)

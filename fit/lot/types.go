@@ -129,7 +129,7 @@ type Split struct {
 }
 
 // SplitBasis says what the bar of a [Split] rests on.
-const SplitBasis = "fewer than 1 % of lots of one population pass the bar, all quantities looked at together: by simulation 0.4 % of normal lots, 0.8 % of lots spread evenly over a range or with the tails of Student's t with 5 degrees of freedom"
+const SplitBasis = "fewer than 1 % of lots of one population have as much, all quantities looked at together: by simulation 0.4 % of normal lots, 0.8 % of lots spread evenly over a range or with the tails of Student's t with 5 degrees of freedom"
 
 // Spread is the whole answer for one lot.
 type Spread struct {

@@ -137,7 +137,7 @@ func (g *twoGroups) sentence() string {
 	if g.also != nil {
 		text += fmt.Sprintf(", and %s parts them in the same way", NameOf(g.also.key))
 	}
-	text += fmt.Sprintf(" (score %s, bar %s: fewer than 1 %% of lots of one population pass it)", short(g.parts.score), short(g.bar))
+	text += fmt.Sprintf(" (evidence %s, where %s is needed: fewer than 1 %% of lots of one population have as much)", short(g.parts.score), short(g.bar))
 	return text + "; this is not evidence of origin: stop, ask the source, measure all devices"
 }
 
@@ -166,13 +166,31 @@ func gapWords(c *column, p parting) string {
 
 // estimatorWords names the robust spread and says why it is used.
 func estimatorWords(n int) string {
-	text := "robust spread = 1.4826 × MAD, the median distance from the median, which a few odd devices cannot widen (and not below what the readings themselves are uncertain by)"
 	switch {
 	case n < 3:
-		return text
+		return robustSpread
 	case n <= 10:
-		return text + fmt.Sprintf("; a plain 3-sigma rule is blind here, because with %d devices none can lie more than %.2f ordinary standard deviations from the mean",
-			n, float64(n-1)/math.Sqrt(float64(n)))
+		return robustSpread + "; " + blindRule(n)
 	}
-	return text + "; an odd device widens the ordinary standard deviation and hides itself in it; limits suppose a lot spread like a normal distribution, one with heavier tails gets more flags"
+	return robustSpread + "; " + robustReason
+}
+
+const (
+	robustSpread = "robust spread = 1.4826 × MAD, the median distance from the median, which a few odd devices cannot widen (and not below what the readings themselves are uncertain by)"
+	robustReason = "an odd device widens the ordinary standard deviation and hides itself in it; limits suppose a lot spread like a normal distribution, one with heavier tails gets more flags"
+)
+
+// blindRule says what a rule by ordinary standard deviations cannot see in n devices.
+func blindRule(n int) string {
+	return fmt.Sprintf("a plain 3-sigma rule is blind here, because with %d devices none can lie more than %.2f ordinary standard deviations from the mean",
+		n, float64(n-1)/math.Sqrt(float64(n)))
+}
+
+// RobustWords explains the robust spread, a sentence each.
+func RobustWords() []string {
+	return []string{
+		robustSpread, robustReason,
+		fmt.Sprintf("a plain 3-sigma rule is blind among few: of 10 devices none can lie more than %.2f ordinary standard deviations from the mean", 9/math.Sqrt(10)),
+		"devices that never reach the current count as above every value in medians",
+	}
 }

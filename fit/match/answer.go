@@ -225,6 +225,22 @@ func (p *problem) leave(m *Matching, taken []bool) {
 	slices.SortStableFunc(m.LeftOver, func(a, b LeftOver) int { return a.Member - b.Member })
 }
 
+// alsoApart names the quantities besides the first in which two devices are further
+// apart than the tolerance, "" where there are none: their distance alone would look
+// near enough.
+func (p *problem) alsoApart(d, e int) string {
+	var in []string
+	for c, most := range p.limit {
+		if c > 0 && most != noLimit && p.part(p.at, c, d, e) > most {
+			in = append(in, p.nameOf(p.opt.By[c].Key))
+		}
+	}
+	if in == nil {
+		return ""
+	}
+	return " and too far off in " + strings.Join(in, " and ")
+}
+
 // whyLeft says why a device that took part is in no set.
 func (p *problem) whyLeft(d int, taken []bool) string {
 	near, at := -1, int64(math.MaxInt64)
@@ -250,7 +266,7 @@ func (p *problem) whyLeft(d int, taken []bool) string {
 	apart := volts(float64(at) / nano)
 	switch {
 	case p.limits() && within == 0:
-		return fmt.Sprintf("no other device is within the tolerance; the nearest, %s, is %s away", name, apart)
+		return fmt.Sprintf("no other device is within the tolerance; the nearest, %s, is %s away%s", name, apart, p.alsoApart(d, near))
 	case p.limits() && within < p.opt.Size-1:
 		return fmt.Sprintf("only %s within the tolerance, too few for a set of %d", plural(within, "other device"), p.opt.Size)
 	case p.opt.Aim == Best:

@@ -329,7 +329,7 @@ func TestAnyPricesBound(t *testing.T) {
 			}
 			v := make([]int64, g.n)
 			for i := range v {
-				v[i] = int64((rng.NormFloat64()*0.3 + 1) * float64(b.total[z]) / float64(z*k) * float64(g.size[i]))
+				v[i] = int64(inPrice * (rng.NormFloat64()*0.3 + 1) * float64(b.total[z]) / float64(z*k) * float64(g.size[i]))
 			}
 			low, _, ok := g.bound(v, z, g.late)
 			if !ok || low > b.total[z] {
@@ -342,5 +342,64 @@ func TestAnyPricesBound(t *testing.T) {
 	}
 	if near < 20 {
 		t.Errorf("only %d bounds were above half the best total: the test says little", near)
+	}
+}
+
+// TestSearchAgainstExact: the search for great stocks, on small ones, against the
+// division in every way: what it calls optimal is, its bounds hold, and it finds the
+// best nearly always.
+func TestSearchAgainstExact(t *testing.T) {
+	rng := rand.New(rand.NewPCG(6, 2026))
+	const cases = 40
+	best, proved := 0, 0
+	for c := range cases {
+		k := 3 + c%2
+		ms := small(rng, 9+rng.IntN(6), 0)
+		by := twoQuantities()
+		by[0].Within = []float64{0.03, 0.06, 0.1}[c/8%3]
+		if c%5 == 4 {
+			ms[0].Package, ms[1].Package = "P", "P"
+		}
+		p, err := newProblem(ms, Options{Size: k, By: by, Aim: aims[c/2%4], Sets: 2, TimeLimit: 300 * time.Millisecond})
+		if err != nil {
+			t.Fatal(err)
+		}
+		score := func(a *answer) (total, worst int64) {
+			for _, s := range a.sets {
+				d := p.mismatch(p.devicesOf(s))
+				total, worst = total+d, max(worst, d)
+			}
+			return total, worst
+		}
+		exact, found := p.matchGroups(t.Context(), true), p.matchGroups(t.Context(), false)
+		total, worst := score(exact)
+		have, haveWorst := score(found)
+		where := fmt.Sprintf("case %d, %d devices, %d sets of %d, %s", c, len(ms), len(exact.sets), k, p.opt.Aim)
+		if total != exact.total || len(exact.sets) != exact.most {
+			t.Fatalf("%s: exact answer %d, claimed %d", where, total, exact.total)
+		}
+		if found.most < len(exact.sets) {
+			t.Errorf("%s: at most %d are claimed", where, found.most)
+		}
+		same := len(found.sets) == len(exact.sets)
+		if same && found.total > total && (p.opt.Aim != Worst || haveWorst == worst) {
+			t.Errorf("%s: bound %d above the best total %d", where, found.total, total)
+		}
+		if found.worst > worst && same {
+			t.Errorf("%s: bound of the worst %d above %d", where, found.worst, worst)
+		}
+		reached := same && have == total && (p.opt.Aim != Worst || haveWorst == worst)
+		if reached {
+			best++
+		}
+		if found.kind == Optimal {
+			if proved++; !reached {
+				t.Errorf("%s: called optimal with %d sets, total %d, worst %d; best %d, %d", where, len(found.sets), have, haveWorst, total, worst)
+			}
+		}
+	}
+	t.Logf("of %d cases the best was found in %d and proved in %d", cases, best, proved)
+	if best < cases*9/10 || proved < cases/2 {
+		t.Errorf("of %d cases the best was found in %d and proved in %d only", cases, best, proved)
 	}
 }

@@ -11,8 +11,8 @@ import (
 const usualLimit = 30 * time.Second
 
 // matchGroups looks for sets where only a search can, and for a bound of how good
-// they are.
-func (p *problem) matchGroups(ctx context.Context) *answer {
+// they are; with exact, few items are divided in every way instead.
+func (p *problem) matchGroups(ctx context.Context, exact bool) *answer {
 	limit := p.opt.TimeLimit
 	if limit <= 0 {
 		limit = usualLimit
@@ -27,15 +27,27 @@ func (p *problem) matchGroups(ctx context.Context) *answer {
 	if p.opt.Aim == Worst {
 		g.tighten(share(0.35))
 	}
+	if exact && g.few() {
+		g.exactFor(p.opt.Aim, a)
+		return a
+	}
 	var numbered string
 	var all []column
-	if g.ban && len(g.sets) > 0 {
+	switch {
+	case g.ban:
 		all = g.all(mostColumns, g.by(share(0.3)))
+	default:
+		all = g.all(fewColumns, g.by(share(0.3)))
 	}
 	a.most, numbered = g.number(all, p.mostGroups(g), brief())
 	low := p.simpleBound(g)
 	if g.total > low.total && len(g.sets) > 0 {
-		g.priced(a, &low, len(g.sets), share(0.7), share(0.85))
+		if g.n <= wholeMax {
+			g.priced(a, &low, len(g.sets), share(0.7), share(0.85))
+		} else {
+			g.cellPrices(a, &low, len(g.sets), p.cells(g), g.by(share(0.7)))
+			g.improve(60, g.by(share(0.97)))
+		}
 	}
 	if all != nil && g.total > low.total {
 		if text, ok := g.settle(all, brief()); ok {
@@ -306,11 +318,7 @@ func (m *master) generate(add func(column), over func() bool, rounds int, enough
 				trial[i] = 0.5*v[i] + 0.5*center[i]
 			}
 		}
-		whole := make([]int64, len(v))
-		for i := range v {
-			whole[i] = int64(math.Floor(trial[i]))
-		}
-		t, found, ok := m.g.bound(whole, m.z, over)
+		t, found, ok := m.g.bound(inPrices(trial), m.z, over)
 		if ok && t > best {
 			best, center = t, trial
 		}

@@ -14,13 +14,15 @@ import (
 // quantities or by the whole curve, pairs of n-channel with p-channel devices, and
 // fours of two packages are exact, by matchings of least weight whose prices are
 // checked anew for every pair. Sets of three and more in several quantities, and of
-// single devices mixed with packages, are searched for; a lower bound, for which a
+// single devices mixed with packages, are exact up to 20 of them, beyond which they
+// are searched for; a lower bound, for which a
 // proof was carried out, says how much better any other answer can be at most.
 //
 // Members are not modified. The result is the same on every run, except where the
-// time limit ends a search. When ctx ends first, the error is that of ctx; a search
-// gives what it has found by then. With too few devices for one set the result
-// still lists them all with the reasons, and the error is ErrTooFew.
+// time limit ends a search. When ctx ends first, the result is what has been found
+// by then, with a bound; the error is that of ctx where that is nothing. With too
+// few devices for one set the result still lists them all with the reasons, and the
+// error is ErrTooFew.
 //
 // Errors: ErrSize, ErrCriteria, ErrWeights, ErrTolerance, ErrAim, ErrCurrents for
 // options that cannot be; ErrTooFew. Warnings: see there.
@@ -29,6 +31,9 @@ import (
 func Match(ctx context.Context, members []Member, opt Options) (*Matching, error) {
 	p, err := newProblem(members, opt)
 	if err != nil {
+		return nil, err
+	}
+	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
 	m := &Matching{
@@ -48,7 +53,7 @@ func Match(ctx context.Context, members []Member, opt Options) (*Matching, error
 	p.fill(m, a)
 	p.warn(m)
 	if !p.opt.NoTradeOff {
-		m.TradeOff = p.tradeOff(ctx)
+		m.TradeOff = p.tradeOff(ctx, m)
 	}
 	return m, nil
 }
@@ -70,12 +75,12 @@ func (p *problem) whyTooFew() string {
 // solve finds the sets.
 func (p *problem) solve(ctx context.Context) (*answer, error) {
 	if p.oneQuantity() && p.loose() && !p.complementary {
-		return p.oneLine(), ctx.Err()
+		return p.oneLine(), nil
 	}
 	if c := p.couples(); c != nil {
 		return p.matchPairs(ctx, c)
 	}
-	return p.matchGroups(ctx), nil
+	return p.matchGroups(ctx, true), nil
 }
 
 // oneLine is the exact answer in one quantity.

@@ -115,7 +115,7 @@ func (p *problem) withMore(k int, rng *rand.Rand) *problem {
 		}
 		q.items = append(q.items, further)
 	}
-	q.weigh()
+	q.weigh() // no wider than p by much
 	return &q
 }
 

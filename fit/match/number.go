@@ -7,7 +7,8 @@ import (
 )
 
 const (
-	mostColumns = 200_000 // sets that are written down in full
+	mostColumns = 200_000 // sets within the tolerances that are written down in full
+	fewColumns  = 50_000  // the same where no tolerance refuses any
 	fine        = 1 << 20 // prices of the proof of a number are whole multiples of 1/fine
 	setValue    = 1e6     // of a set in the linear programme; its mismatch counts up to a thousandth of it
 	mismatch    = 1e-3
@@ -22,7 +23,7 @@ const (
 // scheduling, 1981; from memory). It gives the bound, or most, with what it rests
 // on.
 func (g *groups) number(cols []column, most int, over func() bool) (int, string) {
-	if cols == nil || len(g.sets) >= most || g.fixed > 0 && len(g.sets) >= g.fixed {
+	if cols == nil || !g.ban || len(g.sets) >= most || g.fixed > 0 && len(g.sets) >= g.fixed {
 		return most, ""
 	}
 	var dearest int64 = 1
@@ -181,23 +182,19 @@ func (m *master) refusal() float64 {
 // floor is the total that the duals prove for the columns allowed, in whole
 // numbers: see bound. It looks at all columns and so needs all of them to be there.
 func (m *master) floor() int64 {
-	v := m.prices()
-	whole := make([]int64, len(v))
-	for i := range v {
-		whole[i] = int64(math.Floor(v[i]))
-	}
+	whole := inPrices(m.prices())
 	var least int64
 	for c := range m.cols {
 		if m.refused(c) {
 			continue
 		}
-		r := m.cols[c].cost
+		r := m.cols[c].cost * inPrice
 		for _, i := range m.cols[c].items {
 			r -= whole[i]
 		}
 		least = min(least, r)
 	}
-	return m.g.pricesLess(whole, m.z) + int64(m.z)*least
+	return roundUp(m.g.pricesLess(whole, m.z) + int64(m.z)*least)
 }
 
 // settle looks for the least total of as many sets as there are, where all that
@@ -213,15 +210,19 @@ func (g *groups) settle(cols []column, over func() bool) (string, bool) {
 	if t.sets != nil {
 		g.take(t.sets)
 	}
-	return fmt.Sprintf("in each of %s that leave nothing out, prices of the devices show that no %d of the %d sets within the tolerances have a smaller total", plural(t.cases, "case"), len(g.sets), len(cols)), !t.ended
+	return fmt.Sprintf("in each of %s that leave nothing out, prices of the devices show that no %d of the %d sets that can be made have a smaller total", plural(t.cases, "case"), len(g.sets), len(cols)), !t.ended
 }
 
 // parted gives two items that shares have together neither wholly nor not at all;
 // -1: there are none.
 func (m *master) parted(cols []int, x []float64) (i, j int32) {
 	sum := map[[2]int32]float64{}
+	alone := make([]float64, m.g.n) // by item: share of all sets with it
 	for k, c := range cols {
 		items := m.cols[c].items
+		for _, a := range items {
+			alone[a] += x[k]
+		}
 		for a := range items {
 			for b := range a {
 				sum[[2]int32{min(items[a], items[b]), max(items[a], items[b])}] += x[k]
@@ -231,8 +232,12 @@ func (m *master) parted(cols []int, x []float64) (i, j int32) {
 	i, j = -1, -1
 	far := 0.49 // from a half
 	for key, s := range sum {
-		d := math.Abs(s - 0.5)
-		if d < far-1e-9 || d < far+1e-9 && i >= 0 && (key[0] < i || key[0] == i && key[1] < j) {
+		if math.Max(alone[key[0]], alone[key[1]]) < s+1e-5 {
+			continue // no set parts them: the case that they are together is this one
+		}
+		// In steps, so that the choice does not hang on the order of the map.
+		d := math.Round(math.Abs(s-0.5)*1e6) / 1e6
+		if d < far || d == far && i >= 0 && (key[0] < i || key[0] == i && key[1] < j) {
 			far, i, j = d, key[0], key[1]
 		}
 	}

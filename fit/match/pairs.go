@@ -23,7 +23,6 @@ type couples struct {
 	things   [][]int              // devices of each
 	distance func(i, j int) int64 // beyond where the two must not be joined
 	cloud    blossom.Cloud        // without Cost
-	pairs    func() blossom.Pairs // all that may be joined
 	noun     string
 }
 
@@ -45,7 +44,7 @@ func (p *problem) couples() *couples {
 			}
 			c.things = append(c.things, it.devices)
 		}
-		c.noun = "pair of packages"
+		c.noun = "package pair"
 	default:
 		return nil
 	}

@@ -1,6 +1,9 @@
 package match
 
-import "slices"
+import (
+	"math"
+	"slices"
+)
 
 // column is a set that may be made, as one of many to choose from.
 type column struct {
@@ -16,7 +19,33 @@ type column struct {
 // are the least for their first item (only those below 0 need be found). What
 // prices are taken decides how good the bound is, not whether it holds.
 
-// bound gives that sum for whole prices, with columns of negative reduced cost for
+// inPrice is how many units of a price make a nanovolt: finer than differences, so
+// that what rounding takes off a bound is less than the nanovolt to which it is
+// rounded up.
+const inPrice = 1 << 10
+
+// mostPriced is beyond all distances, and small enough for sums of prices.
+const mostPriced = 4 * mostDistance
+
+// inPrices makes whole prices.
+func inPrices(v []float64) []int64 {
+	whole := make([]int64, len(v))
+	for i := range v {
+		whole[i] = int64(math.Floor(v[i] * inPrice))
+	}
+	return whole
+}
+
+// roundUp gives a bound in prices as one in nanovolts, in which all totals are whole.
+func roundUp(low int64) int64 {
+	q := low / inPrice
+	if low > q*inPrice {
+		q++
+	}
+	return q
+}
+
+// bound gives that sum for whole prices, in nanovolts, with columns of negative reduced cost for
 // which it is not yet right; ok is false when the time ended it.
 func (g *groups) bound(v []int64, z int, over func() bool) (low int64, found []column, ok bool) {
 	low = g.pricesLess(v, z)
@@ -36,7 +65,7 @@ func (g *groups) bound(v []int64, z int, over func() bool) (low int64, found []c
 	for _, r := range least[:min(z, len(least))] {
 		low += r
 	}
-	return low, s.found, true
+	return roundUp(low), s.found, true
 }
 
 // pricesLess is the sum of the prices less the most that the devices in no set can
@@ -138,16 +167,18 @@ func (s *pricing) from(at int) int64 {
 	if d > g.cap {
 		return 0
 	}
+	d *= inPrice
+	most := min(g.cap, mostPriced-1) * inPrice
 	// No set has more further items than k less the size of this one, and no item
 	// after this one a higher price.
 	rest := int64(g.k - g.size[i])
 	var cands []candidate
 	for _, j := range s.seq[at+1:] {
-		e := max(d, g.dist(i, j))
+		e := max(d, s.far(i, j))
 		if g.size[j] > 1 {
-			e = max(e, g.dist(j, j))
+			e = max(e, s.far(j, j))
 		}
-		if e > g.cap || e >= s.v[i]+s.v[j]+(rest-int64(g.size[j]))*max(0, s.v[s.seq[at+1]]) {
+		if e > most || e >= s.v[i]+s.v[j]+(rest-int64(g.size[j]))*max(0, s.v[s.seq[at+1]]) {
 			continue
 		}
 		cands = append(cands, candidate{j, s.v[j], e})
@@ -156,7 +187,7 @@ func (s *pricing) from(at int) int64 {
 	s.set = append(s.set[:0], i)
 	s.extend(cands, d, s.v[i], g.size[i], g.pch[i])
 	if s.best < 0 {
-		s.found = append(s.found, column{toInt32(s.pick), s.best + s.worth(s.pick)})
+		s.found = append(s.found, column{toInt32(s.pick), (s.best + s.worth(s.pick)) / inPrice})
 		s.found = append(s.found, s.extra...)
 	}
 	s.extra = s.extra[:0]
@@ -170,6 +201,10 @@ func (s *pricing) worth(set []int) int64 {
 	}
 	return w
 }
+
+// far is the distance of two items in the unit of the prices; what is beyond every
+// limit stays so.
+func (s *pricing) far(i, j int) int64 { return min(s.g.dist(i, j), mostPriced) * inPrice }
 
 func toInt32(set []int) []int32 {
 	out := make([]int32, len(set))
@@ -208,7 +243,7 @@ func (s *pricing) extend(cands []candidate, d, w int64, size, pch int) {
 		if left == 0 {
 			if r := e - w - c.v; r < s.best && (g.needP < 0 || pch+g.pch[c.i] == g.needP) {
 				if s.pick != nil && len(s.extra) < 4 {
-					s.extra = append(s.extra, column{toInt32(s.pick), s.best + s.worth(s.pick)})
+					s.extra = append(s.extra, column{toInt32(s.pick), (s.best + s.worth(s.pick)) / inPrice})
 				}
 				s.best = r
 				s.pick = append(append(s.pick[:0:0], s.set...), c.i)
@@ -224,8 +259,8 @@ func (s *pricing) extend(cands []candidate, d, w int64, size, pch int) {
 		}
 		var further []candidate
 		for _, f := range cands[x+1:] {
-			fd := max(f.d, g.dist(c.i, f.i))
-			if fd > g.cap || max(fd, e)-w-c.v-f.v-int64(left-g.size[f.i])*next >= s.best {
+			fd := max(f.d, s.far(c.i, f.i))
+			if fd > min(g.cap, mostPriced-1)*inPrice || max(fd, e)-w-c.v-f.v-int64(left-g.size[f.i])*next >= s.best {
 				continue
 			}
 			further = append(further, candidate{f.i, f.v, fd})
@@ -241,7 +276,7 @@ func (s *pricing) extend(cands []candidate, d, w int64, size, pch int) {
 
 // all gives every set that may be made, nil where there are more than most.
 func (g *groups) all(most int, over func() bool) []column {
-	var cols []column
+	cols := []column{}
 	set := make([]int, 0, g.k)
 	steps := 0
 	var grow func(cands []candidate, d int64, size, pch int) bool

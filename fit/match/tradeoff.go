@@ -17,7 +17,10 @@ const (
 )
 
 // tradeOff gives the number of sets at each tolerance of the table.
-func (p *problem) tradeOff(ctx context.Context) []TradeOff {
+//
+// Where only a search can, sets found at a smaller tolerance, and those of the
+// answer m itself, count at a greater one too.
+func (p *problem) tradeOff(ctx context.Context, m *Matching) []TradeOff {
 	var rows []TradeOff
 	gm := p.median(fit.KeyGmIdle)
 	for _, t := range tolerances {
@@ -28,6 +31,19 @@ func (p *problem) tradeOff(ctx context.Context) []TradeOff {
 		row := TradeOff{Within: t, Mean: math.NaN(), Imbalance: math.NaN()}
 		sets, total, exact := q.countSets(ctx, quickSearch/time.Duration(len(tolerances)))
 		row.Sets, row.Total, row.Exact = sets, float64(total)/nano, exact
+		better := func(sets int, total float64) {
+			if !exact && (sets > row.Sets || sets == row.Sets && total < row.Total) {
+				row.Sets, row.Total = sets, total
+			}
+		}
+		if len(rows) > 0 {
+			better(rows[len(rows)-1].Sets, rows[len(rows)-1].Total)
+		}
+		if first := p.opt.By[0].Within; m.Aim == Most && t >= first*(1-1e-9) {
+			better(len(m.Sets), m.Total)
+			row.Exact = row.Exact || math.Abs(t-first) < 1e-9*t && m.Bound.Kind == Optimal
+		}
+		sets = row.Sets
 		if sets > 0 {
 			row.Mean = row.Total / float64(sets)
 		}

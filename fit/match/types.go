@@ -73,7 +73,8 @@ const (
 	Best  Aim = "best"  // exactly Options.Sets sets, the least total mismatch
 )
 
-// Options are the choices of [Match].
+// Options are the choices of [Match]. Criteria carry their own tolerances and weights,
+// so that there cannot be too many or too few of these.
 type Options struct {
 	Size int         // devices in a set; 0: 2
 	By   []Criterion // the first is a gate voltage or KeyCurve and gives distances their unit; nil: KeyVgsIdle without tolerance
@@ -187,7 +188,7 @@ const (
 // Bound is how good the answer can be at most.
 type Bound struct {
 	Kind  string  // Optimal or LowerBound
-	Total float64 // V, no answer with as many sets has a smaller total
+	Total float64 // V, no answer with as many sets has a smaller total; for Worst: none whose worst is no greater
 	Worst float64 // V, for Worst: no answer with as many sets has a smaller greatest distance; NaN for other aims
 	Sets  int     // no answer has more sets
 	Gap   float64 // Matching.Total over Total, less 1; 0 when both are 0, NaN when only the bound is

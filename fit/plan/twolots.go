@@ -138,7 +138,7 @@ func ToShowSame(r SameRequest) (*Same, error) {
 		atLeast("n", r.N, fewest, "two lots are not compared with fewer than 3 of either"), atMost("n", r.N),
 	)
 	if err == nil && !(math.Abs(r.Shift) < r.Margin) {
-		err = &Invalid{"shift", fmt.Sprintf("a true shift of %.6g V is not within the margin of %.6g V", r.Shift, r.Margin), "a smaller one, or none"}
+		err = &Invalid{"shift", fmt.Sprintf("a true shift of %s is not within the margin of %s", volts(r.Shift), volts(r.Margin)), "a smaller --shift, a larger --margin, or no --shift"}
 	}
 	if err != nil {
 		return nil, err
@@ -167,6 +167,14 @@ func ToShowSame(r SameRequest) (*Same, error) {
 	s.ChanceT = stats.WelchEquivalencePower(s.Few, s.Few, r.Shift, -r.Margin, r.Margin, r.SD, r.SD, sameAlpha)
 	s.Hopeless = s.Chance < hopeless
 	return s, nil
+}
+
+// volts writes a voltage as it would be given.
+func volts(x float64) string {
+	if math.Abs(x) < 1 {
+		return fmt.Sprintf("%.6g mV", 1e3*x)
+	}
+	return fmt.Sprintf("%.6g V", x)
 }
 
 // atFewest is a size that is also enough to be compared at all; 0: too large.

@@ -15,16 +15,16 @@ func TestVariablesPlan(t *testing.T) {
 	}
 	known := VariablesPlanFor(d["p1"], 1-d["pa1"], d["p2"], d["pa2"], true)
 	unknown := VariablesPlanFor(d["p1"], 1-d["pa1"], d["p2"], d["pa2"], false)
-	near(t, "n known", float64(known.N), number(t, p.Expected["n_known"]), 0)
-	near(t, "k known", known.K, number(t, p.Expected["k_known"]), number(t, p.Tolerance["k_known"]))
+	near(t, "n known", float64(known.N), number(t, p.Expected.of("n_known")), 0)
+	near(t, "k known", known.K, number(t, p.Expected.of("k_known")), number(t, p.Tolerance["k_known"]))
 	relative(t, "k known", known.K, number(t, p.Recomputed["k_known"]), 1e-9)
-	near(t, "n unknown", float64(unknown.N), number(t, p.Expected["n_unknown"]), 0)
-	near(t, "k unknown", unknown.K, number(t, p.Expected["k_unknown_from_producer_point"]), number(t, p.Tolerance["k_unknown_from_producer_point"]))
+	near(t, "n unknown", float64(unknown.N), number(t, p.Expected.of("n_unknown")), 0)
+	near(t, "k unknown", unknown.K, number(t, p.Expected.of("k_unknown_from_producer_point")), number(t, p.Tolerance["k_unknown_from_producer_point"]))
 	ends := floats(t, p.Recomputed["k_unknown_interval"])
 	relative(t, "least k", unknown.KLeast, ends[0], 1e-9)
 	relative(t, "most k", unknown.KMost, ends[1], 1e-9)
 	// The published k lies 3e-5 above the most, from its numerical search.
-	printed := VariablesPlan{N: 49, K: number(t, p.Expected["k_unknown_from_producer_point"])}
+	printed := VariablesPlan{N: 49, K: number(t, p.Expected.of("k_unknown_from_producer_point"))}
 	near(t, "accepts good, k as printed", printed.Accepts(d["p1"]), number(t, p.Recomputed["pa_at_p1"]), 1e-6)
 	near(t, "accepts bad, k as printed", printed.Accepts(d["p2"]), number(t, p.Recomputed["pa_at_p2"]), 1e-5)
 	for _, v := range []VariablesPlan{known, unknown} {
@@ -51,7 +51,7 @@ func TestVariablesOC(t *testing.T) {
 		N        int
 		K, P, PA float64
 	}
-	decode(t, p.Expected["points"], &points)
+	decode(t, p.Expected.of("points"), &points)
 	for _, q := range points {
 		got := VariablesPlan{N: q.N, K: q.K}.Accepts(q.P)
 		near(t, "accepts", got, q.PA, number(t, p.Tolerance["abs"]))
@@ -75,7 +75,7 @@ func TestJudgement(t *testing.T) {
 	for key, got := range map[string]float64{
 		"mean": mean, "sd": sd, "Q": j.QHigh, "accept": accept, "p_hat_percent": 100 * j.BadHigh, "M_percent_from_k": 100 * j.MostBad,
 	} {
-		near(t, key, got, number(t, p.Expected[key]), number(t, p.Tolerance[key]))
+		near(t, key, got, number(t, p.Expected.of(key)), number(t, p.Tolerance[key]))
 		relative(t, key, got, number(t, p.Recomputed[key]), 1e-9)
 	}
 	var plans []struct {

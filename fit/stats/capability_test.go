@@ -14,9 +14,11 @@ func TestCapability(t *testing.T) {
 	}
 	c := CapabilityOf(d.Mean, d.SD, 0, d.LSL, d.USL)
 	for key, got := range map[string]float64{"Cp": c.Cp, "Cpu": c.Upper, "Cpl": c.Lower, "Cpk": c.Cpk} {
-		near(t, key, got, number(t, p.Expected[key]), number(t, p.Tolerance[key]))
+		near(t, key, got, number(t, p.Expected.of(key)), number(t, p.Tolerance[key]))
 		relative(t, key, got, number(t, p.Recomputed[key]), 1e-12)
 	}
+	// k is how far the mean lies off the middle, in halves of the room: Cpk = Cp (1 - k).
+	near(t, "k", 1-c.Cpk/c.Cp, number(t, p.Expected.of("k")), number(t, p.Tolerance["k"]))
 	if one := CapabilityOf(d.Mean, d.SD, 0, math.NaN(), d.USL); !math.IsNaN(one.Cp) || !math.IsNaN(one.Lower) || one.Cpk != c.Upper {
 		t.Errorf("upper limit alone: %+v", one)
 	}
@@ -40,8 +42,8 @@ func TestCapabilityIntervals(t *testing.T) {
 		all, ranges = append(all, g...), append(ranges, s[len(s)-1]-s[0])
 	}
 	sd := Mean(ranges) / 2.326 // d2 with the three decimals that the source takes
-	near(t, "center", Mean(all), number(t, p.Expected["center"]), number(t, p.Tolerance["center"]))
-	near(t, "sigma_within", sd, number(t, p.Expected["sigma_within"]), number(t, p.Tolerance["sigma_within"]))
+	near(t, "center", Mean(all), number(t, p.Expected.of("center")), number(t, p.Tolerance["center"]))
+	near(t, "sigma_within", sd, number(t, p.Expected.of("sigma_within")), number(t, p.Tolerance["sigma_within"]))
 	for i, suffix := range []string{"", "_narrow", "_skew"} {
 		c := CapabilityOf(Mean(all), sd, len(all), limits[i][0], limits[i][1])
 		single := map[string]float64{"Cp" + suffix: c.Cp, "Cpk" + suffix: c.Cpk}
@@ -49,13 +51,13 @@ func TestCapabilityIntervals(t *testing.T) {
 			single["Cpl"], single["Cpu"] = c.Lower, c.Upper
 		}
 		for key, got := range single {
-			near(t, key, got, number(t, p.Expected[key]), number(t, p.Tolerance[key]))
+			near(t, key, got, number(t, p.Expected.of(key)), number(t, p.Tolerance[key]))
 			relative(t, key, got, number(t, p.Recomputed[key]), 1e-9)
 		}
 		cpLow, cpHigh := CpInterval(c.Cp, len(all), 0.95)
 		kLow, kHigh := CpkInterval(c.Cpk, len(all), 0.95)
 		for key, got := range map[string][2]float64{"Cp_ci" + suffix: {cpLow, cpHigh}, "Cpk_ci" + suffix: {kLow, kHigh}} {
-			want, full := floats(t, p.Expected[key]), floats(t, p.Recomputed[key])
+			want, full := floats(t, p.Expected.of(key)), floats(t, p.Recomputed[key])
 			for k := range got {
 				near(t, key, got[k], want[k], number(t, p.Tolerance[key]))
 				relative(t, key, got[k], full[k], 1e-9)

@@ -14,7 +14,7 @@ func TestChartConstants(t *testing.T) {
 		c := ChartConstantsOf(int(n))
 		for name, got := range map[string]float64{"A2": c.A2, "D3": c.D3, "D4": c.D4, "c4": c.MeanSD, "d2": c.MeanRange} {
 			what := name + " of " + strconv.Itoa(int(n))
-			near(t, what, got, floats(t, p.Expected[name])[i], number(t, p.Tolerance[name]))
+			near(t, what, got, floats(t, p.Expected.of(name))[i], number(t, p.Tolerance[name]))
 			near(t, what+" in full", got, floats(t, p.Recomputed[name])[i], 1e-9)
 		}
 	}

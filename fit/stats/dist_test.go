@@ -25,7 +25,7 @@ func TestTails(t *testing.T) {
 	type point struct{ P, DF, D1, D2, X, CDF, SF, NCP float64 }
 	points := func(key string) []point {
 		var list []point
-		decode(t, p.Expected[key], &list)
+		decode(t, p.Expected.of(key), &list)
 		if len(list) < 4 {
 			t.Fatalf("%s: %d points", key, len(list))
 		}
@@ -76,7 +76,7 @@ func TestTailsAgainstManyDigits(t *testing.T) {
 	p := load(t, "distribution_tails")
 	tol := number(t, p.Tolerance["rel"])
 	rows := func(key string) (list [][]float64) {
-		decode(t, p.Expected[key], &list)
+		decode(t, p.Expected.of(key), &list)
 		return list
 	}
 	worst := map[string]float64{}

@@ -44,3 +44,24 @@ func MeanSD(x []float64) (mean, sd float64) {
 	// sum is zero but for rounding; its square takes out what is left of it.
 	return mean, math.Sqrt(math.Max(0, squares-sum*sum/n) / (n - 1))
 }
+
+// Lag1 is the correlation of every value with the next one, in the order in which
+// they stand:
+//
+//	Σ (x[i]-mean)(x[i+1]-mean) / Σ (x[i]-mean)²
+//
+// Inputs: x in the order of time, not modified. Result: about 0 for values that do not
+// lean on their forerunners, NaN for fewer than two values, no spread, and values that
+// are no finite numbers. Source: certified figures of the NIST reference data sets
+// (StRD, univariate), whose definition this is. Checked: TestCertifiedMoments.
+func Lag1(x []float64) float64 {
+	mean, sd := MeanSD(x)
+	if !(sd > 0) || math.IsInf(sd, 0) {
+		return math.NaN()
+	}
+	sum := 0.0
+	for i := range len(x) - 1 {
+		sum += (x[i] - mean) / sd * ((x[i+1] - mean) / sd)
+	}
+	return sum / float64(len(x)-1)
+}

@@ -34,7 +34,7 @@ func TestAdjustedP(t *testing.T) {
 			}
 		}
 		near(t, name+" rejected", rejected, number(t, p.Recomputed["n_rejected_"+name]), 0)
-		if e, ok := p.Expected["n_rejected_"+name]; ok {
+		if e, ok := p.Expected.find("n_rejected_" + name); ok {
 			near(t, name+" rejected, published", rejected, number(t, e), number(t, p.Tolerance["n_rejected_"+name]))
 		}
 		if out := f(nil); len(out) != 0 {

@@ -46,16 +46,16 @@ func asPublished(t *testing.T, p published, got map[string]float64, part float64
 		rel = number(t, raw)
 	}
 	for key, v := range got {
-		_, in := p.Expected[key]
+		_, in := p.Expected.find(key)
 		_, again := p.Recomputed[key]
 		if !in && !again {
 			t.Errorf("%s: no such figure in the file", key)
 		}
 		if in {
 			if raw, ok := p.Tolerance[key]; ok {
-				near(t, key+" as published", v, number(t, p.Expected[key]), number(t, raw))
+				near(t, key+" as published", v, number(t, p.Expected.of(key)), number(t, raw))
 			} else if rel > 0 {
-				relative(t, key+" as published", v, number(t, p.Expected[key]), rel)
+				relative(t, key+" as published", v, number(t, p.Expected.of(key)), rel)
 			} else {
 				t.Errorf("%s: no tolerance", key)
 			}
@@ -64,7 +64,7 @@ func asPublished(t *testing.T, p published, got map[string]float64, part float64
 			relative(t, key+" recomputed", v, number(t, p.Recomputed[key]), part)
 		}
 	}
-	for key := range p.Expected {
+	for key := range p.Expected.all() {
 		if _, ok := got[key]; !ok {
 			t.Logf("not compared here: %s", key)
 		}
@@ -76,7 +76,7 @@ func TestAndersonDarling(t *testing.T) {
 	r := AndersonDarling(floats(t, p.Data["y"]))
 	asPublished(t, p, map[string]float64{"A2": r.Statistic, "A2_modified": r.Modified, "p": r.P}, 1e-9)
 	for name, want := range others(t, "anderson_darling_chicks") {
-		r := AndersonDarling(readings(t, load(t, otherSets[name])))
+		r := AndersonDarling(readings(t, dataOf(t, otherSets[name])))
 		relative(t, name+" A2", r.Statistic, want["A2"], 1e-9)
 		relative(t, name+" modified", r.Modified, want["A2_modified"], 1e-9)
 		relative(t, name+" p", r.P, want["p"], 1e-9)
@@ -88,7 +88,7 @@ func TestShapiroWilk(t *testing.T) {
 	r := ShapiroWilk(floats(t, p.Data["y"]))
 	asPublished(t, p, map[string]float64{"W": r.Statistic, "p": r.P}, 2e-6)
 	for name, want := range others(t, "shapiro_wilk") {
-		r := ShapiroWilk(readings(t, load(t, otherSets[name])))
+		r := ShapiroWilk(readings(t, dataOf(t, otherSets[name])))
 		near(t, name+" W", r.Statistic, want["W"], 2e-6) // two tools of the file agree to this
 		relative(t, name+" p", r.P, want["p"], 2e-4)
 	}
@@ -120,10 +120,14 @@ func TestProbabilityPlot(t *testing.T) {
 		near(t, size+" 0.01", ProbabilityPlotCritical(n, 0.01), want["p01"], 0)
 		near(t, size+" 0.05", ProbabilityPlotCritical(n, 0.05), want["p05"], 0)
 	}
+	// The table came from the same file; what stands apart was read off it once more.
+	for size, key := range map[int]string{10: "crit_05_n10", 20: "crit_05_n20", 50: "crit_05_n50"} {
+		near(t, key, ProbabilityPlotCritical(size, 0.05), number(t, p.Expected.of(key)), 0)
+	}
 	var r map[string]float64
 	decode(t, p.Recomputed["r"], &r)
 	for name, want := range r {
-		near(t, name, ProbabilityPlot(readings(t, load(t, otherSets[name]))).Statistic, want, 1e-9)
+		near(t, name, ProbabilityPlot(readings(t, dataOf(t, otherSets[name]))).Statistic, want, 1e-9)
 	}
 	// Which columns are meant: the share of normal samples below them.
 	var simulated map[string][2]float64

@@ -23,7 +23,7 @@ func TestStudentizedRange(t *testing.T) {
 		K       int
 		DF, CDF float64
 	}
-	decode(t, p.Expected["cdf_points"], &points)
+	decode(t, p.Expected.of("cdf_points"), &points)
 	if len(points) != 72 {
 		t.Fatalf("%d points, want 72", len(points))
 	}
@@ -48,7 +48,7 @@ func TestStudentizedRange(t *testing.T) {
 		K     int
 		DF, Q float64
 	}
-	decode(t, p.Expected["quantiles"], &quantiles)
+	decode(t, p.Expected.of("quantiles"), &quantiles)
 	for _, c := range quantiles {
 		nearPart(t, "quantile", StudentizedRangeQuantile(c.P, c.K, c.DF), c.Q, number(t, p.Tolerance["quantile_rel"]))
 		nearPart(t, "quantile in full", StudentizedRangeQuantile(c.P, c.K, c.DF), c.Q, 1e-9)

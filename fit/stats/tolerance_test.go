@@ -16,18 +16,18 @@ func TestToleranceFactors(t *testing.T) {
 		decode(t, p.Data[k], into)
 	}
 	one := ToleranceFactor(d.N, d.Coverage, d.Confidence)
-	near(t, "one-sided, n = 43", one, number(t, p.Expected["k1_exact"]), number(t, p.Tolerance["k1_exact"]))
+	near(t, "one-sided, n = 43", one, number(t, p.Expected.of("k1_exact")), number(t, p.Tolerance["k1_exact"]))
 	relative(t, "one-sided, n = 43", one, number(t, p.Recomputed["k1_exact"]), 1e-9)
 	six := ToleranceFactor(6, d.Coverage, d.Confidence)
-	near(t, "one-sided, n = 6", six, number(t, p.Expected["k1_exact_n6"]), number(t, p.Tolerance["k1_exact_n6"]))
+	near(t, "one-sided, n = 6", six, number(t, p.Expected.of("k1_exact_n6")), number(t, p.Tolerance["k1_exact_n6"]))
 	relative(t, "one-sided, n = 6", six, number(t, p.Recomputed["k1_exact_n6"]), 1e-9)
 	// The published two-sided figure is Howe's approximation, 0.25 % below.
 	two := ToleranceFactorTwoSided(d.N, d.Coverage, d.Confidence)
 	relative(t, "two-sided, n = 43", two, number(t, p.Recomputed["k2_exact"]), 1e-9)
-	near(t, "chi-square behind it", ChiSquareQuantile(1-d.Confidence, float64(d.N-1)), number(t, p.Expected["chi2_01_42"]), number(t, p.Tolerance["chi2_01_42"]))
+	near(t, "chi-square behind it", ChiSquareQuantile(1-d.Confidence, float64(d.N-1)), number(t, p.Expected.of("chi2_01_42")), number(t, p.Tolerance["chi2_01_42"]))
 	df := float64(d.N - 1)
 	howe := math.Sqrt(df * (1 + 1/float64(d.N)) * math.Pow(NormalQuantile((1+d.Coverage)/2), 2) / ChiSquareQuantile(1-d.Confidence, df))
-	near(t, "Howe's approximation", howe, number(t, p.Expected["k2_howe"]), number(t, p.Tolerance["k2_howe"]))
+	near(t, "Howe's approximation", howe, number(t, p.Expected.of("k2_howe")), number(t, p.Tolerance["k2_howe"]))
 	near(t, "two-sided beside Howe's", two/howe, 1, 0.005)
 }
 
@@ -40,7 +40,7 @@ func TestToleranceGrid(t *testing.T) {
 		Two                  float64  `json:"k2_exact"`
 		Published            *float64 `json:"k1_published"`
 	}
-	decode(t, p.Expected["grid"], &grid)
+	decode(t, p.Expected.of("grid"), &grid)
 	published := 0
 	for _, g := range grid {
 		one := ToleranceFactor(g.N, g.Coverage, g.Confidence)
@@ -61,7 +61,7 @@ func TestToleranceGrid(t *testing.T) {
 		Published            float64 `json:"k_published"`
 		Exact                float64 `json:"k_exact"`
 	}
-	decode(t, q.Expected["points"], &points)
+	decode(t, q.Expected.of("points"), &points)
 	for _, g := range points {
 		two := ToleranceFactorTwoSided(g.N, g.Coverage, g.Confidence)
 		near(t, "two-sided as printed", two, g.Published, number(t, q.Tolerance["abs_vs_published"]))
@@ -82,10 +82,10 @@ func TestFreeTolerance(t *testing.T) {
 	}{
 		"n59": {LowerOnly, 0.95, 0.95}, "n93": {Both, 0.95, 0.95}, "n46": {Both, 0.9, 0.95}, "n299": {UpperOnly, 0.99, 0.95}, "n473": {Both, 0.99, 0.95},
 	} {
-		near(t, key, float64(FreeSize(c.sides, c.share, c.con)), number(t, p.Expected[key]), 0)
+		near(t, key, float64(FreeSize(c.sides, c.share, c.con)), number(t, p.Expected.of(key)), 0)
 	}
 	con := FreeConfidence(46, 2, 0.9)
-	near(t, "confidence of 46", con, number(t, p.Expected["conf_n46"]), number(t, p.Tolerance["conf_n46"]))
+	near(t, "confidence of 46", con, number(t, p.Expected.of("conf_n46")), number(t, p.Tolerance["conf_n46"]))
 	relative(t, "confidence of 46", con, number(t, p.Recomputed["conf_n46"]), 1e-9)
 	for key, sides := range map[string]Sides{"n_one_sided": LowerOnly, "n_two_sided": Both} {
 		var sizes map[string]float64

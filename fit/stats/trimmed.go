@@ -62,12 +62,6 @@ func TrimmedT(x []float64, null, trim, level float64) TTest {
 	return tTest(m.Mean, null, m.SE, m.DF, level, m.WinsorizedSD/winsorizedNormal(share), m.DF)
 }
 
-// PairedTrimmedT is [TrimmedT] of the differences x[i]-y[i] against 0. A
-// difference of two infinite values of one sign is no number: then all is NaN.
-func PairedTrimmedT(x, y []float64, trim, level float64) TTest {
-	return TrimmedT(pairDifferences(x, y), 0, trim, level)
-}
-
 // YuenT tests the difference of the trimmed means of x and y against 0, each
 // sample with its own spread: [WelchT] with trim 0. With a trim of 0.2 single
 // values that lie far off, and infinite ones, hardly move it, and its level holds

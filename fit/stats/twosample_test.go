@@ -10,7 +10,7 @@ import (
 // interval is a published pair of limits.
 func interval(t *testing.T, p published, key string, low, high, part float64) {
 	t.Helper()
-	if raw, ok := p.Expected[key]; ok {
+	if raw, ok := p.Expected.find(key); ok {
 		want := floats(t, raw)
 		tol := 1e-9 * math.Abs(want[1]-want[0])
 		if raw, ok := p.Tolerance[key]; ok {
@@ -32,6 +32,26 @@ func TestMeanInterval(t *testing.T) {
 	r := OneSampleT(x, number(t, p.Data["mu0"]), 0.95)
 	asPublished(t, p, map[string]float64{"n": float64(len(x)), "mean": r.Estimate, "sd": SD(x), "t_crit": UpperT(0.025, r.DF),
 		"ci_low": r.Low, "ci_high": r.High, "t_stat": r.Statistic}, 1e-9)
+}
+
+// The test knows nothing of the sample but its summary: the figures that are published
+// (rounded to the digits printed) lead to the published interval.
+func TestMeanIntervalOfSummary(t *testing.T) {
+	p := dataOf(t, "ehb_ci_mean_zarr13") // its figures: TestMeanInterval
+	printed := func(key string) float64 { return number(t, p.Expected.of(key)) }
+	r := OneSampleTOf(Summary{N: int(printed("n")), Mean: printed("mean"), SD: printed("sd")}, number(t, p.Data["mu0"]), 0.95)
+	near(t, "low", r.Low, printed("ci_low"), 6e-6) // the mean is printed to 1e-5
+	near(t, "high", r.High, printed("ci_high"), 6e-6)
+	near(t, "statistic", r.Statistic, printed("t_stat"), 0.06) // 2611 by an SD of five digits
+	x := floats(t, p.Data["y"])
+	if a, b := OneSampleT(x, 9, 0.9), OneSampleTOf(SummaryOf(x), 9, 0.9); a != b {
+		t.Errorf("%+v, by its summary %+v", a, b)
+	}
+	for _, s := range []Summary{{}, {N: 1, Mean: 2, SD: math.NaN()}, {N: 5, Mean: 2}, {N: 5, Mean: math.NaN(), SD: 1}} {
+		if r := OneSampleTOf(s, 0, 0.95); !math.IsNaN(r.P) || !math.IsNaN(r.Low) {
+			t.Errorf("%+v: %+v, want NaN", s, r)
+		}
+	}
 }
 
 func TestTwoMeans(t *testing.T) {
@@ -58,7 +78,7 @@ func TestTwoMeans(t *testing.T) {
 	asPublished(t, p, map[string]float64{"t": b.Statistic, "df": b.DF, "p": b.P, "cohens_d": b.Effect, "F_welch_oneway": b.Statistic * b.Statistic}, 1e-9)
 	interval(t, p, "ci", b.Low, b.High, 1e-9)
 
-	p = load(t, "ehb_f_test_ceramic")
+	p = dataOf(t, "ehb_f_test_ceramic") // its figures: TestCeramic
 	b = WelchT(floats(t, p.Data["y1"]), floats(t, p.Data["y2"]), 0.95)
 	asPublished(t, p, map[string]float64{"t_welch": b.Statistic, "df_welch": b.DF, "p_welch": b.P}, 1e-9)
 }

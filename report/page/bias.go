@@ -315,9 +315,10 @@ func (b *biased) units(v *biasView) {
 	p, n := b.p, b.p.Now
 	all := len(p.Units)
 	v.Apart = all > unitsInPlace || len(b.Lines) > 0 || len(p.Choices) > 0
+	note := b.UnitNotes()
 	noted := false
 	for i := range p.Units {
-		noted = noted || b.UnitNote(&p.Units[i]) != ""
+		noted = noted || note(&p.Units[i]) != ""
 	}
 	heads := []head{{"device", false}, {"gate bias (V)", true}}
 	if n != nil && n.Trimmed {
@@ -358,7 +359,7 @@ func (b *biased) units(v *biasView) {
 				row = append(row, number(at))
 			}
 			if noted {
-				row = append(row, text(b.UnitNote(u)))
+				row = append(row, text(note(u)))
 			}
 			t.Rows = append(t.Rows, row)
 		}

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"html/template"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -20,6 +21,7 @@ type compared struct {
 	Shape     string // beside its word
 	Verdict   string
 	Sentence  template.HTML
+	Beside    template.HTML // which counts where tests differ; "": they do not
 	Tiles     []tile
 	Alerts    []alert // what weighs on the verdict itself
 	Notes     []alert
@@ -87,11 +89,15 @@ func largest(list ...float64) float64 {
 
 // bare writes a shift with its sign and without its unit.
 func (p *pair) bare(x float64) string {
-	text := p.scale.FormatNumber(x, p.step, 0)
-	if isNumber(x) && x > 0 {
-		text = "+" + text
+	return plus(p.scale.FormatNumber(x, p.step, 0))
+}
+
+// plus puts a plus before a number that is above 0 as it is written.
+func plus(text string) string {
+	if text == report.NotAvailable || strings.HasPrefix(text, "-") || strings.Trim(text, "0.") == "" {
+		return text
 	}
-	return text
+	return "+" + text
 }
 
 func (p *pair) shift(x float64) string {
@@ -134,6 +140,12 @@ func (v *view) compared(k *known) {
 		w.word, w.shape, w.class = report.Sentence(report.Clean(string(p.c.Verdict))), "?", "few"
 	}
 	d := &compared{Reference: report.Clean(p.c.Reference), Class: w.class, Shape: w.shape, Verdict: w.word, Sentence: rich(report.Sentence(k.Compared.Reason()))}
+	if p.c.Paired != nil && p.c.Verdict == compare.Differs {
+		d.Verdict = "The readings differ" // of the same devices: nothing is said of lots
+	}
+	if p.c.Beside != "" {
+		d.Beside = rich(report.Sentence(p.c.Beside))
+	}
 	lead := "Compared with lot " + p.c.Reference + ": " + string(p.c.Verdict)
 	if isNumber(p.c.Shift) {
 		lead += fmt.Sprintf(", shift %s (%s interval %s)", p.shift(p.c.Shift), percent(p.c.Level), p.interval(p.c.Low, p.c.High))
@@ -209,7 +221,10 @@ func (p *pair) alerts(d *compared) {
 			Text: "The margin was set after readings of this lot were known. A margin chosen with the numbers in sight can be made to fit them.",
 			Next: "Let a lot that was measured after the margin was set confirm the verdict."})
 	}
-	for _, w := range report.JoinWarnings(p.c.Warnings) {
+	own := slices.DeleteFunc(slices.Clone(p.c.Warnings), func(w fit.Warning) bool { // stands with the result
+		return w.Code == fit.CodeTwoPopulations && p.lots[1].Spread.Split != nil && strings.Contains(w.Text, p.lots[1].Spread.Split.Text)
+	})
+	for _, w := range report.JoinWarnings(own) {
 		d.Notes = append(d.Notes, alert{Text: rich(report.Sentence(w.Text)), Next: rich(p.Advice(w.Code).Next)})
 	}
 }
@@ -403,6 +418,8 @@ func (p *pair) populations(say func(head, format string, args ...any)) {
 	for i, s := range p.lots {
 		text := [...]string{"Reference: ", "This lot: "}[i]
 		switch sp := s.Spread.Split; {
+		case s.Spread.Populations > 1 && i == 1:
+			text += "two, see the result"
 		case s.Spread.Populations > 1 && sp != nil && sp.Text != "":
 			text += "two; " + strings.TrimSuffix(report.Clean(sp.Text), ".")
 		case s.Spread.Populations > 1:

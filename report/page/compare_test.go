@@ -86,7 +86,7 @@ func TestComparisonIsTold(t *testing.T) {
 		"of the reference (95 % interval", "invented test on spreads", "gain at equal threshold At equal threshold no difference of the gain factor is seen: +1.2 %, 95 % interval -0.4 to +2.8 %. By the gain factor, n = 34 and 30, adjusted by the common slope of gain on threshold, p = 0.14.",
 		"By serial, 30 pairs. 34 serials stand in both lots and their values go together. The pairs alone, with nothing taken off and without the error common to a lot: +14.3 mV, 95 % interval +10.3 to +18.3 mV. The differences scatter by 1.1 mV (1 sd, n = 30).",
 		"with a value (n) 35 30", "above: never reach the current 2 1", "with neither 1 0", "flagged: counted, never left out for that 4 5", "excluded 3 7", "control parts, in no statistic 6 8",
-		"centre (trimmed mean) 3.384 V (n = 35) 3.396 V (n = 30)", "parts in the lot 160 144", "how the sample was taken every fourth part of the tubes, in tube order every fourth",
+		"centre (trimmed mean), as read 3.384 V (n = 35) 3.396 V (n = 30)", "parts in the lot 160 144", "how the sample was taken every fourth part of the tubes, in tube order every fourth",
 		"invented test on ranks +12.1 mV (+3.1 to +21.2 mV) 412", "invented test on whole distributions 0.31 n/a n/a", "They decide nothing", "take it as it is With the old network", "send back No rule of yours is broken. outside-margin: not met.", "re-adjust The trimmers move by 15 mV at the centre. none stored",
 		"Only in the reference, 1 device : D39", "Only in this lot, 2 devices : X1, X2", "Heating was not checked in either lot.", "Populations Reference: one. This lot: one.",
 		s.Compared.Reference.Hash, "fitted by gatesill 0.1.0", "Conditions of both lots", "reference load: drain fed through R_L from V_DD", "Instruments of the reference",
@@ -199,6 +199,30 @@ func TestPopulationsOfBothLots(t *testing.T) {
 	require.Contains(t, words(section(t, write(t, s))), "Reference: two; a gap of 485 mV parts the lot 8 to 17. This lot: one.")
 }
 
+// Which test counts, the words of a stored rule, readings of the same devices that are
+// no lots, and a warning that stands with the result already.
+func TestWhatTheComparisonSays(t *testing.T) {
+	s := compared(two[0], two[1], invented.Against{})
+	c := s.Compared
+	c.Verdict, c.Paired = compare.Differs, nil
+	c.Beside = "beside it no test sees a difference"
+	c.Options = []compare.Option{{Name: compare.SendBack, Text: "kept", Rule: compare.ByLimits}}
+	s.Spread.Populations, s.Spread.Split = 2, &lot.Split{By: fit.KeyVgsth, Text: "two populations by a gap of 485 mV"}
+	c.Warnings = []fit.Warning{{Code: fit.CodeTwoPopulations, Text: "lot " + c.Candidate + ": two populations by a gap of 485 mV"}}
+	page := write(t, s)
+	text := words(section(t, page))
+	require.Contains(t, text, "≠ The lots differ")
+	require.Contains(t, text, "Beside it no test sees a difference.")
+	require.Contains(t, text, "A device outside the data-sheet limits.")
+	require.NotContains(t, text, "outside-limits")
+	require.Contains(t, text, "This lot: two, see the result.")
+	require.NotContains(t, text, "485")
+	require.Contains(t, words(page), "Two populations by a gap of 485 mV")
+	c.Paired = &compare.Paired{Pairs: 12, Why: "asked for"}
+	text = words(section(t, write(t, s)))
+	require.Contains(t, text, "≠ The readings differ")
+}
+
 func TestRunOfLots(t *testing.T) {
 	s := invented.Lot(two[0])
 	s.Trend = invented.Trend(13)
@@ -208,6 +232,11 @@ func TestRunOfLots(t *testing.T) {
 	require.Contains(t, text, "2612: 3.4700 ± 0.0060 V, n = 32, 2026-01-04 (this lot) (outside the control limits)")
 	require.Contains(t, text, "Fewer than 20 lots: the limits are provisional.")
 	require.Contains(t, text, "2600, 2612 50 20 to 80 4.0e-04 0.002")
+	run := page[strings.Index(page, `<section id="trend"`):]
+	run = run[:strings.Index(run, "</section>")]
+	lots, folded := strings.Index(run, "The run of lots"), strings.Index(run, "<details")
+	require.True(t, 0 < lots && lots < folded && folded < strings.Index(run, "Lot against lot"), "the table of lots is open, that of pairs folded")
+	require.Equal(t, 1, strings.Count(run, "<details"))
 	require.NotContains(t, text, "the order of the lots is not that of their making")
 	s.Trend.Untimed = true
 	require.Contains(t, words(write(t, s)), "the order of the lots is not that of their making")

@@ -285,11 +285,7 @@ func (p *pair) band(d *compared) {
 	for _, x := range b.Points {
 		u := (x.High - x.Low) / 4
 		num := func(v float64) string {
-			w := p.scale.FormatNumber(v, u, 0)
-			if isNumber(v) && v > 0 {
-				w = "+" + w
-			}
-			return w
+			return plus(p.scale.FormatNumber(v, u, 0))
 		}
 		t.Rows = append(t.Rows, []cell{{Text: rich(report.FormatGiven(x.I, "A")), Head: true}, number(num(x.Shift)), number(num(x.Low) + " to " + num(x.High)), number(strconv.Itoa(x.Reference)), number(strconv.Itoa(x.Candidate))})
 	}

@@ -58,7 +58,7 @@ func (p *pair) tables(d *compared) {
 			row := []cell{{Text: rich(o.Name), Head: true}, text(report.Sentence(o.Text))}
 			switch {
 			case o.Rule != "":
-				row = append(row, text(report.Sentence(o.Rule)))
+				row = append(row, text(report.Sentence(report.SendBackWords(o.Rule))))
 			case rules:
 				row = append(row, cell{Text: "none stored", None: true})
 			}
@@ -92,7 +92,11 @@ func (p *pair) counts() *table {
 	row("flagged: counted, never left out for that", whole(func(i int) int { return c.Counts[i].Flagged }))
 	row("set aside: open, shorted, wrong way round, excluded", whole(func(i int) int { return c.Counts[i].Aside }))
 	row("control parts, in no statistic", whole(func(i int) int { return c.Counts[i].Control }))
-	row("centre (trimmed mean)", func(i int) string {
+	centre := "centre (trimmed mean)"
+	if isNumber(c.Raw) {
+		centre += ", as read"
+	}
+	row(centre, func(i int) string {
 		n := c.Counts[i].WithValue
 		if !isNumber(c.Centre[i]) {
 			return report.NotAvailable
@@ -176,10 +180,7 @@ func (p *pair) pairs(d *compared) {
 			continue
 		}
 		u := n.Result.At(p.c.Quantity).U
-		diff := p.scale.FormatNumber(y-x, least, 0)
-		if y > x {
-			diff = "+" + diff
-		}
+		diff := plus(p.scale.FormatNumber(y-x, least, 0))
 		t.Rows = append(t.Rows, []cell{nameCell(n.Name), number(vs.FormatNumber(x, r.U, 0)), number(vs.FormatNumber(y, u, 0)), number(diff)})
 	}
 	if total > 0 {
@@ -249,7 +250,8 @@ func version(v string) string {
 // trend is the run of lots with its picture.
 type trend struct {
 	Figure *figure
-	Pairs  *table
+	Lots   *table
+	Pairs  *table // of all lots, folded
 	Texts  []template.HTML
 }
 
@@ -259,6 +261,7 @@ func (v *view) trend(k *known) {
 		return
 	}
 	d := &trend{Figure: k.trendFigure(t)}
+	d.Lots, d.Figure.Data = d.Figure.Data, nil
 	if t.Untimed {
 		d.Texts = append(d.Texts, "The time of some lot is not known: the order of the lots is not that of their making.")
 	}
@@ -273,7 +276,7 @@ func (v *view) trend(k *known) {
 		}
 		sc := report.ScaleOf(unit, largest(all...))
 		pt := &table{Caption: "Lot against lot", Heads: []head{{"lots", false}, {richf("shift (%s)", sc.Unit(unit)), true}, {"interval", true}, {"p", true}, {"p adjusted", true}},
-			Note: "The shift is the second lot less the first. The intervals hold together (Bonferroni); p adjusted is by Holm."}
+			Note: "The shift is the second lot less the first. The intervals hold together (Bonferroni); p adjusted is by Holm over all pairs here, so that a pair that differs by itself need not differ among so many."}
 		for i, p := range t.Pairs {
 			if i == maxPairs {
 				pt.Note += richf(" The first %d of %d.", maxPairs, len(t.Pairs))

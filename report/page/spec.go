@@ -45,7 +45,10 @@ func (v *view) specification(k *known) {
 		}
 		out.Verdicts = t
 		out.Notes = append(out.Notes,
-			rich("The value of a device and its absolute standard uncertainty decide; the probability that it conforms is that of a normal distribution about the value. Decisions after JCGM 106:2012 and, with their four words, ILAC-G8:09/2019."),
+			rich("The value of a device and its absolute standard uncertainty decide; the probability that it conforms is that of a normal distribution about the value. Decisions after JCGM 106:2012 and, with their four words, ILAC-G8:09/2019."))
+	}
+	if sp.Why == "" || sp.Outside.N > 0 {
+		out.Notes = append(out.Notes,
 			rich("Ppk is the distance of the mean from the nearer limit in units of three standard deviations; its one-sided lower limit is the result. It is declined below 25 devices, in two populations and where the Anderson-Darling test finds the lot far from normal (p below 0.01). The tolerance interval and the share outside hold for parts of which these devices are a random sample."))
 	}
 	v.Spec = out

@@ -61,7 +61,7 @@ func (v *view) spread(k *known) {
 		for _, o := range sp.Origins {
 			v.Groups = append(v.Groups, group{richf("By %s", o.Of), rich(report.OriginWords(o))})
 		}
-		v.GroupNote = richf("Score %.3g, bar %.3g: %s.", sp.Score, sp.Bar, lot.SplitBasis)
+		v.GroupNote = richf("The evidence for two groups is %.3g, and %.3g is needed: %s.", sp.Score, sp.Bar, lot.SplitBasis)
 	}
 	l := &table{Caption: "Limits behind the flags", Heads: []head{{"quantity", false}, {"unit", false}, {"low", true}, {"high", true}, {"× robust sd", true}, {"basis", false}}}
 	for _, key := range report.KeysIn(k.Spread.Limits) {

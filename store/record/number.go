@@ -25,8 +25,16 @@ func (a Amount) String() string {
 	return strconv.FormatFloat(a.Value, 'g', -1, 64) + a.Unit
 }
 
+// GreatestShift is the voltage, V, above which no margin, guard band or shift of a
+// gate voltage is taken: 50MV is mostly a 50mV.
+const GreatestShift = 1e3
+
+// examples are amounts as they are written in each unit.
+var examples = map[string]string{"V": "50mV", "%": "10%", "A": "25mA", "u": "2u"}
+
 // ParseAmount reads a number in one of the units; the first unit is that of a
-// bare number. "u" and "%" take no SI prefix.
+// bare number. "u" and "%" take no SI prefix. More volts than [GreatestShift] are
+// refused: amounts are shifts of gate voltages.
 func ParseAmount(text string, units ...string) (Amount, error) {
 	text = strings.TrimSpace(text)
 	if text == "" {
@@ -47,10 +55,20 @@ func ParseAmount(text string, units ...string) (Amount, error) {
 			continue
 		}
 		if x, unit, err := parseNumber(text, u); err == nil && (unit == u || u == units[0]) {
+			if u == "V" && math.Abs(x) > GreatestShift {
+				return Amount{}, fmt.Errorf("%q is more than any gate voltage; prefixes are case sensitive, M is mega and m is milli: %w", text, ErrInvalid)
+			}
 			return Amount{Value: x, Unit: u}, nil
 		}
 	}
-	return Amount{}, fmt.Errorf("%q is not a number in %s: %w", text, strings.Join(units, ", "), ErrInvalid)
+	like := make([]string, len(units))
+	for i, u := range units {
+		like[i] = examples[u]
+		if right := rightCase(text, u); right != "" {
+			return Amount{}, fmt.Errorf("%q: prefixes and units are case sensitive, write %s: %w", text, right, ErrInvalid)
+		}
+	}
+	return Amount{}, fmt.Errorf("%q is not a number in %s, as in %s: %w", text, strings.Join(units, ", "), strings.Join(like, ", "), ErrInvalid)
 }
 
 // ParseNumber reads one number in the given SI unit: "2.2m", "2.2 mA", "2m2",
@@ -61,7 +79,44 @@ func ParseAmount(text string, units ...string) (Amount, error) {
 // no prefix; "ohm" takes ohm, Ω, R and the R form 2R2.
 func ParseNumber(text, unit string) (float64, error) {
 	x, _, err := parseNumber(text, unit)
+	if right := rightCase(text, unit); err != nil && right != "" {
+		return 0, fmt.Errorf("%q: prefixes and units are case sensitive, write %s: %w", text, right, ErrInvalid)
+	}
 	return x, err
+}
+
+// rightCase is a number with prefix and unit in the case they have, where only that
+// was wrong with it; "" otherwise.
+func rightCase(text, unit string) string {
+	text = strings.TrimSpace(text)
+	n := scanDecimal(text)
+	wrong := strings.TrimSpace(text[n:])
+	if n == 0 || wrong == "" {
+		return ""
+	}
+	if _, _, err := SplitUnit(wrong, unit); err == nil {
+		return ""
+	}
+	spellings := unitSpellings[unit]
+	for _, p := range append([]string{""}, prefixTexts()...) {
+		for _, s := range spellings {
+			if !strings.EqualFold(wrong, p+s) {
+				continue
+			}
+			if _, _, err := SplitUnit(p+s, unit); err == nil {
+				return text[:n] + p + s
+			}
+		}
+	}
+	return ""
+}
+
+func prefixTexts() []string {
+	out := make([]string, len(prefixes))
+	for i, p := range prefixes {
+		out[i] = p.text
+	}
+	return out
 }
 
 // parseNumber also returns the unit that was written, "" for none.

@@ -3,6 +3,7 @@ package record
 import (
 	"errors"
 	"math"
+	"strings"
 	"testing"
 )
 
@@ -109,4 +110,32 @@ func FuzzParseNumber(f *testing.F) {
 			t.Errorf("ParseNumber(%q, %q): %v is not ErrInvalid", text, unit, err)
 		}
 	})
+}
+
+// A prefix or unit in the wrong case is refused with the right one, and so are amounts
+// that no gate voltage has.
+func TestCase(t *testing.T) {
+	says := func(text, unit, want string) {
+		t.Helper()
+		_, err := ParseNumber(text, unit)
+		if !errors.Is(err, ErrInvalid) || !strings.Contains(err.Error(), want) {
+			t.Errorf("ParseNumber(%q, %q): %v, want it to say %q", text, unit, err, want)
+		}
+	}
+	says("50mv", "V", "write 50mV")
+	says("250 ua", "A", "write 250uA")
+	says("-4mv/k", "V/K", "write -4mV/K")
+	says("50mA", "V", "no unit")
+	says("mv", "V", "not a number")
+	for text, want := range map[string]string{"50mv": "write 50mV", "50MV": "M is mega", "1001": "more than any", "20 cows": "as in 50mV, 10%, 25mA", "25ma": "write 25mA"} {
+		a, err := ParseAmount(text, "V", "%", "A")
+		if !errors.Is(err, ErrInvalid) || !strings.Contains(err.Error(), want) {
+			t.Errorf("ParseAmount(%q) = %v, %v, want it to say %q", text, a, err, want)
+		}
+	}
+	for _, text := range []string{"1kV", "1000", "50mV", "2000%", "2000A"} {
+		if _, err := ParseAmount(text, "V", "%", "A"); err != nil {
+			t.Errorf("ParseAmount(%q): %v", text, err)
+		}
+	}
 }

@@ -69,6 +69,9 @@ func Bias(ctx context.Context, env *Env, name string, o SheetOptions, rq BiasReq
 		return failed("--idle 250mA, or gatesill lot edit "+Quote(name)+" --idle-current 250mA", "lot %q has no idle current", name)
 	}
 	b := report.Bias{Sheet: &s}
+	if w, ok := unlike(&s); ok {
+		b.Warnings = append(b.Warnings, w)
+	}
 	opt, err := rq.options(env, &s, &b)
 	if err != nil {
 		return err
@@ -165,7 +168,7 @@ func (rq *BiasRequest) check(name string) error {
 
 // options turns the request into choices for the plan; what was assumed becomes a warning of b.
 func (rq *BiasRequest) options(env *Env, s *report.Sheet, b *report.Bias) (bias.Options, error) {
-	opt := bias.Options{Idle: s.IdleCurrent, Beta: rq.Beta.Float(), Turns: rq.Turns.Or(0), IdleTol: rq.IdleTol.Or(0), Temp: lotTemperature(s)}
+	opt := bias.Options{Idle: s.IdleCurrent, Beta: rq.Beta.Float(), Turns: rq.Turns.Or(0), IdleTol: rq.IdleTol.Or(0), Temp: valueTemperature(s)}
 	for _, name := range rq.Series {
 		x, err := bias.SeriesNamed(name)
 		if err != nil {
@@ -220,6 +223,25 @@ func warmed(s *report.Sheet) (out [][]bias.TempPoint) {
 	return out
 }
 
+// valueTemperature is the temperature behind the gate voltages of the lot, °C: of each
+// device that of the sweep whose value is nearest to the device's, for where sweeps
+// were taken at several temperatures one of them stands for it. NaN: not known.
+func valueTemperature(s *report.Sheet) float64 {
+	var all []float64
+	for i, list := range warmed(s) {
+		at, off := math.NaN(), math.Inf(1)
+		for _, q := range list {
+			if d := math.Abs(q.Gate - s.Devices[i].Result.VgsIdle.Value); d < off {
+				at, off = q.Temp, d
+			}
+		}
+		if !math.IsNaN(at) {
+			all = append(all, at)
+		}
+	}
+	return median(all)
+}
+
 func biasLot(s *report.Sheet) bias.Lot {
 	return bias.Lot{Name: s.Lot.Name, PChannel: s.Part.Channel == record.PChannel, Populations: max(1, s.Spread.Populations), Devices: lotDevices(s)}
 }
@@ -237,7 +259,7 @@ func (rq *BiasRequest) plan(s *report.Sheet, opt bias.Options) (*bias.Plan, erro
 	case errors.Is(err, bias.ErrSupply):
 		hint := "a supply above the gate voltage, for instance --supply 8V"
 		if biasLot(s).PChannel || s.Part.Mode == record.Depletion {
-			hint = "voltages are against the source: negative gate voltages need a negative supply, for instance --supply=-8V"
+			hint = "voltages are against the source: negative gate voltages need a negative supply, for instance --supply -8V"
 		}
 		return nil, failed(hint, "lot %q: %w", s.Lot.Name, err)
 	case errors.Is(err, bias.ErrNetwork), errors.Is(err, bias.ErrTolerance):
@@ -277,7 +299,7 @@ func (rq *BiasRequest) against(ctx context.Context, env *Env, s *report.Sheet, b
 	if differ != nil {
 		return differ.failure(&ref, s)
 	}
-	opt.Temp = lotTemperature(&ref)
+	opt.Temp = valueTemperature(&ref)
 	plan, err := rq.plan(&ref, opt)
 	if err != nil {
 		return err

@@ -11,7 +11,6 @@ import (
 	"gatesill/fit"
 	"gatesill/fit/compare"
 	"gatesill/report"
-	"gatesill/store"
 	"gatesill/store/record"
 )
 
@@ -23,6 +22,7 @@ type CompareRequest struct {
 	Paired   bool          // by serial
 	Unpaired bool          // never by serial; neither: where serials and values go together
 	Tempco   record.Num    // V/K
+	TempcoU  record.Num    // V/K, its standard uncertainty; not known: a typical share of it
 	Beta     record.Num    // A/V², gain factor of lots whose curves were not measured
 	Fail     bool          // end in [ExitNo] when a lot differs or is outside the margin
 }
@@ -55,8 +55,11 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	if b, ok := rq.Beta.Get(); ok && !(b > 0) {
 		return Usage("--beta 3.8", "--beta: %g A/V², must be above 0", b)
 	}
-	if t, ok := rq.Tempco.Get(); ok && math.Abs(t) > greatestTempco {
-		return Usage("--tempco -4mV/K", "--tempco: %g V/K is more than any gate voltage moves; -4 mV/K is written -4mV/K", t)
+	if err := checkTempco(rq.Tempco); err != nil {
+		return err
+	}
+	if u, ok := rq.TempcoU.Get(); ok && !(u > 0 && rq.Tempco.IsKnown()) {
+		return Usage("--tempco -4mV/K --tempco-u 1mV/K", "--tempco-u: must be above 0, and go with --tempco")
 	}
 	if rq.Paired && rq.Unpaired {
 		return Usage("leave one of them out", "--paired and --unpaired exclude each other")
@@ -72,10 +75,6 @@ func (rq *CompareRequest) check(reference string, candidates []string) error {
 	return nil
 }
 
-// greatestTempco is a slope beyond which a unit was forgotten: gate voltages move
-// by -7 to +5 mV/K (common practice, no source).
-const greatestTempco = 0.1 // V/K
-
 // Compare holds one lot or several against a reference lot. With rq.Fail it ends
 // in [ExitNo] when one of them differs or is outside the margin.
 func Compare(ctx context.Context, env *Env, reference string, candidates []string, o SheetOptions, rq CompareRequest) error {
@@ -86,12 +85,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if err != nil {
 		return err
 	}
-	if rq.Margin.Unit == "V" && rq.Margin.Value >= 5 {
-		env.warn("a margin of %s: a bare number is in volts, 50 mV is written 50mV", report.AmountWords(rq.Margin))
-	}
-	if t, ok := rq.Tempco.Get(); ok && t < 0 && ref.Part.Channel == record.PChannel {
-		env.warn("gate voltages of a p-channel part are negative and fall in magnitude as it warms up: their slope is above 0, as in --tempco 4mV/K")
-	}
+	env.doubt(&ref, rq)
 	sheets := make([]report.Sheet, len(candidates))
 	for i, name := range candidates {
 		if sheets[i], err = env.candidateSheet(ctx, &ref, name, o); err != nil {
@@ -120,9 +114,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 		if err != nil {
 			return failed("", "the run of lots: %w", err)
 		}
-		if rq.Tempco.IsKnown() {
-			trend.Text = append(trend.Text, "the run of lots and its pairs are as read: the temperature is taken off the shifts against the reference lot only")
-		}
+		trend.Text = append(trend.Text, fmt.Sprintf("the verdicts of the %d lots against lot %s stand each on its own and are not adjusted for their number; the p and intervals of the pairs are", len(sheets), ref.Lot.Name))
 		cl.Trend = &trend
 	}
 	env.detail("%s compared in %v", count(1+len(sheets), "lot"), time.Since(start).Round(time.Millisecond))
@@ -134,10 +126,32 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 	if err != nil || !rq.Fail {
 		return err
 	}
+	return env.failOf(sheets)
+}
+
+// doubt warns of numbers that are taken as given and hardly meant.
+func (e *Env) doubt(ref *report.Sheet, rq CompareRequest) {
+	e.doubtMargin(rq.Margin)
+	e.doubtTempco(rq.Tempco, ref.Part)
+}
+
+// failOf ends in [ExitNo] when a lot differs or is outside the margin. Too few to tell
+// is no 'no', and no 'yes' either: that is said.
+func (e *Env) failOf(sheets []report.Sheet) error {
+	var open []string
+	no := false
 	for i := range sheets {
-		if sheets[i].Compared.No() {
-			return &Failure{Code: ExitNo}
+		c := sheets[i].Compared
+		no = no || c.No()
+		if c.Verdict == compare.TooFew {
+			open = append(open, report.Clean(c.Candidate))
 		}
+	}
+	if open != nil {
+		e.warn("--fail: %s: too few to tell is no 'no', and nothing is shown either way", strings.Join(open, ", "))
+	}
+	if no {
+		return &Failure{Code: ExitNo}
 	}
 	return nil
 }
@@ -146,7 +160,7 @@ func Compare(ctx context.Context, env *Env, reference string, candidates []strin
 // the idle current compared at, else the test current.
 func (e *Env) referenceSheet(ctx context.Context, name string, o SheetOptions, rq CompareRequest) (report.Sheet, error) {
 	if rq.By == "vgs-idle" && o.At.IsKnown() {
-		o.Idle, o.At = record.Known(math.Abs(o.At.Float())), record.Num{}
+		o.Idle, o.At = o.At, record.Num{}
 	}
 	return e.Sheet(ctx, name, o)
 }
@@ -194,6 +208,9 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	for _, s := range []*report.Sheet{ref, cand} {
+		if n := len(s.Devices); n > 0 && !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded }) {
+			return out, failed("gatesill device include "+Quote(s.Devices[0].Name)+" --lot "+Quote(s.Lot.Name), "lot %q: %s excluded", s.Lot.Name, allOf(n))
+		}
 		if !slices.ContainsFunc(s.Devices, func(d report.Device) bool { return !d.Excluded && len(d.Sweeps) > 0 }) {
 			return out, failed("gatesill import "+Quote(s.Lot.Name)+" FILE", "lot %q: nothing is measured of it", s.Lot.Name)
 		}
@@ -224,6 +241,8 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 	}
 	opt.Margin, opt.MarginSet = m.volts, m.set
 	opt.Repeatability = repeatabilityOf(ref, cand, by)
+	opt.Spots = onlySpots(ref) && onlySpots(cand)
+	opt.Judged = report.SendBackJudged(cand)
 	opt.SendBack = first(cand.Lot.SendBack, ref.Lot.SendBack)
 	out.MarginFrom = m.text
 	out.Comparison, err = compare.Lots(comparedLot(ref), comparedLot(cand), opt)
@@ -232,12 +251,19 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 	}
 	out.Warnings = append(warnings, out.Warnings...)
 	if out.Paired != nil {
-		out.Warnings = append(out.Warnings, changedPairs(ref, cand, by, rq)...)
-	}
-	if onlySpots(ref) && onlySpots(cand) { // nobody expects curves of them
-		out.Warnings = slices.DeleteFunc(out.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeNotAsked })
+		changed, words := changedPairs(ref, cand, by, rq)
+		out.Warnings = append(out.Warnings, changed...)
+		out.Sentence += words
 	}
 	return out, nil
+}
+
+// allOf names all devices of a lot.
+func allOf(n int) string {
+	if n == 1 {
+		return "its one device is"
+	}
+	return fmt.Sprintf("all %d devices are", n)
 }
 
 // repeatabilityOf is the greater of what is known of the lots' benches, V; NaN where
@@ -266,10 +292,10 @@ func someAbove(s *report.Sheet) bool {
 
 // optionsOf are the choices that hold for every candidate.
 func optionsOf(ref *report.Sheet, by fit.Key, rq CompareRequest) compare.Options {
-	low, high := limitsOf(ref, by)
+	low, high := limitsOf(ref, fit.KeyVgsth) // of V_GS(th), whatever is compared
 	return compare.Options{
 		By: by, Level: rq.Level / 100, Margin: math.NaN(), MarginSet: compare.None, Pairing: rq.pairing(), Repeatability: math.NaN(),
-		Tempco: rq.Tempco.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
+		Tempco: rq.Tempco.Float(), TempcoU: rq.TempcoU.Float(), Beta: rq.Beta.Float(), LimitLow: low, LimitHigh: high, SendBack: ref.Lot.SendBack,
 	}
 }
 
@@ -287,41 +313,6 @@ func limitsOf(s *report.Sheet, by fit.Key) (low, high float64) {
 	return s.Part.VgsthMin.Float(), s.Part.VgsthMax.Float()
 }
 
-// runOfLots lays the lots of the part out in time: the two that were compared, and
-// every other that was measured as they were; nil where there is no other.
-func (e *Env) runOfLots(ctx context.Context, ref, cand *report.Sheet, by fit.Key, o SheetOptions) (*compare.Trend, error) {
-	var names []string
-	if err := e.view(ctx, func(tx *store.Tx) (err error) {
-		names, err = tx.LotsOfPart(ref.Part.ID)
-		return err
-	}); err != nil {
-		return nil, err
-	}
-	lots := []compare.Lot{comparedLot(ref), comparedLot(cand)}
-	for _, name := range names {
-		if name == ref.Lot.Name || name == cand.Lot.Name {
-			continue
-		}
-		s, err := e.candidateSheet(ctx, ref, name, o)
-		if err != nil {
-			return nil, err
-		}
-		if differ, _ := unlikeLots(ref, &s, by, false); differ == nil && hasAny(&s, by) {
-			lots = append(lots, comparedLot(&s))
-		} else {
-			e.detail("lot %s is not in the run of lots: it was not measured as lot %s was", report.Clean(name), report.Clean(ref.Lot.Name))
-		}
-	}
-	if len(lots) < 3 {
-		return nil, nil
-	}
-	t, err := compare.TrendOf(lots, optionsOf(ref, by, CompareRequest{Level: 95}))
-	if err != nil {
-		return nil, failed("", "the run of lots: %w", err)
-	}
-	return &t, nil
-}
-
 // alikeParts refuses lots of different parts. A lot for which no part was named
 // may be of any: that is said.
 func alikeParts(ref, cand *report.Sheet) ([]fit.Warning, error) {
@@ -330,7 +321,7 @@ func alikeParts(ref, cand *report.Sheet) ([]fit.Warning, error) {
 	}
 	if ref.Part.Channel != cand.Part.Channel || ref.Part.Mode != cand.Part.Mode {
 		kind := func(s *report.Sheet) string { return fmt.Sprintf("%s-channel %s", s.Part.Channel, s.Part.Mode) }
-		return nil, failed("gatesill lot edit "+Quote(cand.Lot.Name)+" --channel "+string(ref.Part.Channel)+" --mode "+string(ref.Part.Mode)+", if that is so",
+		return nil, failed("gatesill lot list shows which lots are of one part",
 			"lots of different parts: %s is %s, %s is %s", ref.Lot.Name, kind(ref), cand.Lot.Name, kind(cand))
 	}
 	var unnamed []string
@@ -340,7 +331,7 @@ func alikeParts(ref, cand *report.Sheet) ([]fit.Warning, error) {
 		}
 	}
 	if unnamed == nil {
-		return nil, failed("gatesill lot edit "+Quote(cand.Lot.Name)+" --part "+Quote(ref.Part.Name)+", if they are the same",
+		return nil, failed("gatesill lot list shows which lots are of one part; gatesill lot edit "+Quote(cand.Lot.Name)+" --part "+Quote(ref.Part.Name)+" only if the part was entered wrongly",
 			"lots of different parts: %s is of %s, %s of %s", ref.Lot.Name, ref.Part.Name, cand.Lot.Name, cand.Part.Name)
 	}
 	return []fit.Warning{{Code: fit.CodePartNotNamed, Text: fmt.Sprintf(

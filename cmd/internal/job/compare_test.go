@@ -45,6 +45,10 @@ func TestMarginSetBefore(t *testing.T) {
 	check("2026-05-31T10:00:00.000Z", "", none, compare.Before) // only the import is known
 	check("2026-06-01T11:00:00.000Z", "", none, compare.After)
 	check("", "2026-05-20", none, compare.After)
+	// A file that gives a date in the future: its readings were there when it was imported.
+	check("2026-06-01T09:59:59.999Z", "2099-05-20", none, compare.Before)
+	check("2026-06-01T10:00:00.000Z", "2099-05-20", none, compare.After)
+	check("2026-06-01T11:00:00.000Z", "2099-05-20", none, compare.After)
 	check("2026-05-19T00:00:00.000Z", "2026-05-20", stored, compare.Before) // the stored one, given again
 	check("2026-05-19T00:00:00.000Z", "2026-05-20", record.Amount{Value: 0.051, Unit: "V"}, compare.After)
 
@@ -52,6 +56,77 @@ func TestMarginSetBefore(t *testing.T) {
 	require.NoError(t, err)
 	require.Equal(t, compare.None, m.set)
 	require.True(t, math.IsNaN(m.volts))
+}
+
+// The rules of a lot go by the same first reading as a margin, that of a session too.
+func TestRuleSetBefore(t *testing.T) {
+	s := sheetAt("A", "2099-05-20")
+	require.Equal(t, lot.RuleAfter, ruleSet(s, true, "2026-06-01T10:00:00.001Z"), "after the import")
+	require.Equal(t, lot.RuleBefore, ruleSet(s, true, "2026-06-01T09:00:00.000Z"))
+	require.Equal(t, lot.RuleAfter, ruleSet(s, true, ""))
+	require.Equal(t, lot.RuleNone, ruleSet(s, false, "2026-06-01T09:00:00.000Z"))
+	s.Devices[0].Sweeps[0].SessionID = "x"
+	s.Sessions = []record.Session{{ID: "x", StartedAt: "2026-05-30T08:00:00.000Z"}}
+	require.Equal(t, lot.RuleAfter, ruleSet(s, true, "2026-05-30T08:30:00.000Z"), "after the session began")
+	require.Equal(t, "2026-05-30T08:00:00.000Z", comparedLot(s).At, "its place in the run of lots")
+	s.Devices[0].Sweeps = nil
+	require.Equal(t, lot.RuleBefore, ruleSet(s, true, "2026-06-01T10:00:00.001Z"), "no reading yet")
+}
+
+// A stored margin of the idle current counts as set before only where all that makes
+// volts of it was settled then as well.
+func TestSizeOfMarginSetBefore(t *testing.T) {
+	check := func(want, why string, change func(ref, cand *report.Sheet, rq *CompareRequest)) {
+		t.Helper()
+		ref, cand := sheetAt("A", "2026-01-01"), sheetAt("B", "2026-05-20")
+		ref.Lot.Margin, ref.Lot.MarginSetAt = record.Amount{Value: 10, Unit: "%"}, "2026-05-01T08:00:00.000Z"
+		ref.Part.IdleCurrent, ref.IdleSetAt = record.Known(0.25), "2026-01-01T08:00:00.000Z"
+		ref.Devices[0].Result.GmIdle = fit.Quantity{Value: 1.25}
+		rq := CompareRequest{}
+		if change != nil {
+			change(ref, cand, &rq)
+		}
+		m, err := marginOf(ref, cand, rq)
+		require.NoError(t, err)
+		require.Equal(t, want, m.set, m.text)
+		require.Contains(t, m.text, why)
+	}
+	check(compare.Before, "before the first reading", nil)
+	check(compare.After, "idle current that its size rests on was set on 2026-06-02", func(ref, _ *report.Sheet, _ *CompareRequest) {
+		ref.IdleSetAt = "2026-06-02T08:00:00.000Z"
+	})
+	check(compare.After, "is not that of the part", func(ref, _ *report.Sheet, _ *CompareRequest) { ref.IdleCurrent = 0.3 })
+	check(compare.After, "--beta", func(ref, _ *report.Sheet, rq *CompareRequest) {
+		ref.Devices[0].Result.GmIdle, rq.Beta = fit.None(), record.Known(3.8)
+	})
+	check(compare.Before, "", func(_, _ *report.Sheet, rq *CompareRequest) { rq.Beta = record.Known(3.8) }) // not used
+	check(compare.After, "readings of lot A that came no earlier", func(ref, _ *report.Sheet, _ *CompareRequest) {
+		ref.Devices[0].Sweeps[0].MeasuredAt = "2026-05-25"
+	})
+	check(compare.Before, "", func(ref, _ *report.Sheet, _ *CompareRequest) { // in volts nothing is left open
+		ref.Lot.Margin, ref.IdleSetAt = record.Amount{Value: 0.05, Unit: "V"}, "2026-06-02T08:00:00.000Z"
+	})
+}
+
+// Leaving out devices of the reference lot does not change what a margin is in volts;
+// control parts and faulty ones never counted.
+func TestMarginKeepsItsDevices(t *testing.T) {
+	ref := sheetAt("A", "")
+	one := ref.Devices[0]
+	ref.Devices = nil
+	for _, gm := range []float64{1, 1.2, 2} {
+		d := one
+		d.Result.GmIdle = fit.Quantity{Value: gm}
+		ref.Devices = append(ref.Devices, d)
+	}
+	require.Equal(t, 1.2, medianGm(ref))
+	ref.Devices[0].Excluded = true
+	require.Equal(t, 1.2, medianGm(ref))
+	ref.Devices[1].Role = record.Control
+	ref.Devices[0].Result.State = fit.Shorted
+	require.Equal(t, 1.5, medianGm(ref), "excluded, whatever its state was")
+	ref.Devices[0].Excluded = false
+	require.Equal(t, 2.0, medianGm(ref))
 }
 
 // The lot's own margin goes before that of the reference lot.

@@ -34,8 +34,8 @@ func (ds differences) failure(ref, cand *report.Sheet) error {
 // (judgement).
 const otherDrain = 0.05
 
-// otherTemp is the difference of temperature that is worth a word: 1 to 3 mV at the
-// usual -2 to -5 mV/K.
+// otherTemp is the difference of temperature that is worth a word: 1 to 4 mV at the
+// slopes of [fit.UsualSlope].
 const otherTemp = 0.5 // K
 
 // unlikeLots says in what two lots were not measured alike so that their gate
@@ -103,8 +103,8 @@ func unlikeLots(ref, cand *report.Sheet, by fit.Key, corrected bool) (out differ
 	case math.Abs(d) > warmer && !corrected:
 		out = append(out, difference{"temperature", degrees(r.temp), degrees(c.temp), "--tempco -4mV/K takes a slope that you know off the shift"})
 	case math.Abs(d) > otherTemp && !corrected:
-		warn(fit.CodeUnlikeConditions, "lot %s was %.2g K %s: with the usual -2 to -5 mV/K that alone shifts it by %.1g to %.2g mV; --tempco takes it off",
-			cand.Lot.Name, math.Abs(d), map[bool]string{true: "warmer", false: "colder"}[d > 0], 2*math.Abs(d), 5*math.Abs(d))
+		warn(fit.CodeUnlikeConditions, "lot %s was %.2g K %s: at some %s that alone shifts it by %.1g to %.2g mV; --tempco takes it off",
+			cand.Lot.Name, math.Abs(d), map[bool]string{true: "warmer", false: "colder"}[d > 0], fit.UsualSlope, 1e3*fit.UsualSlopeLow*math.Abs(d), 1e3*fit.UsualSlopeHigh*math.Abs(d))
 	}
 	if r.tempOf != "" && c.tempOf != "" && r.tempOf != c.tempOf {
 		warn(fit.CodeUnlikeConditions, "the temperature is that of the %s in lot %s and of the %s in lot %s", r.tempOf, ref.Lot.Name, c.tempOf, cand.Lot.Name)

@@ -20,9 +20,7 @@ func comparedLot(s *report.Sheet) compare.Lot {
 	if s.Spread.Split != nil {
 		l.Parted = s.Spread.Split.Text
 	}
-	if at, from := firstReading(s); from != fromImport {
-		l.At = at
-	}
+	l.At = measuredAt(s)
 	verdicts, sittings := s.Verdicts(), newSittings(s)
 	for i := range s.Devices {
 		d := &s.Devices[i]
@@ -99,10 +97,14 @@ const (
 	fromImport  = "import of its file"
 )
 
-// firstReading is when the first reading of a lot was taken, a stamp or a bare
-// date: as its sweeps say, else when their session began, else when their file was
-// imported. Set-aside sweeps count: their values have been seen.
-func firstReading(s *report.Sheet) (at, from string) {
+// moment is a time told of the readings of a lot, a stamp or a bare date, and what
+// tells it.
+type moment struct{ at, from string }
+
+// momentsOf gathers what is told of when the sweeps of a lot were taken: by the
+// readings themselves, by their session, and by the import of their file, before which
+// they were there. Set-aside sweeps count: their values have been seen.
+func momentsOf(s *report.Sheet) []moment {
 	started, imported := map[string]string{}, map[string]string{}
 	for _, x := range s.Sessions {
 		started[x.ID] = x.StartedAt
@@ -110,22 +112,48 @@ func firstReading(s *report.Sheet) (at, from string) {
 	for _, x := range s.Sources {
 		imported[x.ID] = x.ImportedAt
 	}
+	var out []moment
 	for i := range s.Devices {
 		for j := range s.Devices[i].Sweeps {
 			sw := &s.Devices[i].Sweeps[j]
-			t, f := sw.MeasuredAt, fromReading
-			if t == "" {
-				t, f = started[sw.SessionID], fromSession
-			}
-			if t == "" {
-				t, f = imported[sw.SourceID], fromImport
-			}
-			if t != "" && (at == "" || t < at) { // a bare date sorts before every stamp of its day
-				at, from = t, f
-			}
+			out = append(out, moment{sw.MeasuredAt, fromReading}, moment{started[sw.SessionID], fromSession}, moment{imported[sw.SourceID], fromImport})
 		}
 	}
-	return at, from
+	return out
+}
+
+// earliest of moments; zero where none has a time. A bare date sorts before every
+// stamp of its day.
+func earliest(ms []moment) (e moment) {
+	for _, m := range ms {
+		if m.at != "" && (e.at == "" || m.at < e.at) {
+			e = m
+		}
+	}
+	return e
+}
+
+// firstReading is when the first reading of a lot was there at the latest: the
+// earliest of all that is told of its sweeps. What stood in the store before a rule
+// was set had been seen, whatever date its file gives.
+func firstReading(s *report.Sheet) (at, from string) {
+	m := earliest(momentsOf(s))
+	return m.at, m.from
+}
+
+// setBefore reports whether a rule was set before the first reading of a lot. Stamps
+// compare as texts, and a day alone comes before every time on it: a rule set on the
+// day of the first reading is not known to be older.
+func setBefore(s *report.Sheet, set string) bool {
+	at, _ := firstReading(s)
+	return set != "" && (at == "" || set < at)
+}
+
+// measuredAt is when a lot was measured by what its sweeps or their sessions say, its
+// place in the run of lots; "" where they say nothing: the import of a file is no time
+// of measuring.
+func measuredAt(s *report.Sheet) string {
+	return earliest(slices.DeleteFunc(momentsOf(s), func(m moment) bool { return m.from == fromImport })).at
 }
 
 // sittings tells session and meters behind the sweeps of one lot.

@@ -22,7 +22,8 @@ type margin struct {
 // candidate's lot, else that of the reference's. It counts as set before only
 // where it is a stored one, set earlier than the first reading of the candidate; on
 // the day of a reading of which only the date is known it does not. One given on
-// the command line that is not the stored one was chosen with the data there.
+// the command line that is not the stored one was chosen with the data there, and so
+// was one of the idle current when what makes volts of it is newer than these readings.
 func marginOf(ref, cand *report.Sheet, rq CompareRequest) (margin, error) {
 	m := margin{volts: math.NaN(), set: compare.None}
 	stored := []*record.Lot{&cand.Lot, &ref.Lot}
@@ -51,14 +52,62 @@ func marginOf(ref, cand *report.Sheet, rq CompareRequest) (margin, error) {
 	}
 	at, of := firstReading(cand)
 	when := "after"
-	if from.MarginSetAt != "" && from.MarginSetAt < at {
+	if setBefore(cand, from.MarginSetAt) {
 		m.set, when = compare.Before, "before"
 	}
-	m.text = how + fmt.Sprintf("stored with lot %s on %s, %s the %s of lot %s", from.Name, day(from.MarginSetAt), when, of, cand.Lot.Name)
+	event := map[string]string{
+		fromReading: "first reading of lot " + cand.Lot.Name, fromSession: "start of the session of lot " + cand.Lot.Name, fromImport: "import of lot " + cand.Lot.Name,
+	}[of]
+	m.text = how + fmt.Sprintf("stored with lot %s on %s, %s the %s", from.Name, day(from.MarginSetAt), when, event)
 	if d := day(at); d != "" {
 		m.text += " on " + d
 	}
+	if m.set == compare.Before && amount.Unit != "V" {
+		if why := lateSize(ref, cand); why != "" {
+			m.set = compare.After
+			m.text += "; it counts as set after it, because " + why
+		}
+	}
 	return m, nil
+}
+
+// lateSize says why the size of a margin of the idle current was open when the first
+// reading of the candidate was there, "" where it was not.
+func lateSize(ref, cand *report.Sheet) string {
+	begun, _ := firstReading(cand)
+	switch {
+	case ref.IdleCurrent != ref.Part.IdleCurrent.Or(math.NaN()):
+		return "the idle current that its size rests on is not that of the part"
+	case !setBefore(cand, ref.IdleSetAt):
+		return "the idle current that its size rests on was set on " + day(ref.IdleSetAt)
+	case math.IsNaN(medianGm(ref)):
+		return "its size rests on the gain factor given with --beta"
+	}
+	for _, m := range newest(ref) {
+		if m >= begun {
+			return "its size rests on readings of lot " + ref.Lot.Name + " that came no earlier"
+		}
+	}
+	return ""
+}
+
+// newest lists for every sweep of a lot behind its transconductance when it was there
+// at the latest.
+func newest(s *report.Sheet) []string {
+	var out []string
+	for i := range s.Devices {
+		d := s.Devices[i]
+		if _, ok := gmOf(&d); !ok {
+			continue
+		}
+		for j := range d.Sweeps {
+			one := *s
+			one.Devices = []report.Device{{Sweeps: d.Sweeps[j : j+1]}}
+			at, _ := firstReading(&one)
+			out = append(out, at)
+		}
+	}
+	return out
 }
 
 // inVolts turns a margin into a shift of the gate voltage. One of the idle
@@ -102,14 +151,21 @@ func inVolts(ref *report.Sheet, a record.Amount, beta record.Num, stored bool) (
 }
 
 // medianGm is the median transconductance of a lot at its idle current, S; NaN
-// where it has none.
+// where it has none. Devices that were excluded count: a margin must not become
+// another by leaving out devices when the readings are there.
 func medianGm(s *report.Sheet) float64 {
 	var all []float64
 	for i := range s.Devices {
-		d := &s.Devices[i]
-		if q := d.Result.At(fit.KeyGmIdle); q.Value > 0 && d.Role != record.Control && asideOf(d) == "" {
-			all = append(all, q.Value)
+		if g, ok := gmOf(&s.Devices[i]); ok {
+			all = append(all, g)
 		}
 	}
 	return median(all)
+}
+
+// gmOf is the transconductance of a device as far as it counts for a margin.
+func gmOf(d *report.Device) (float64, bool) {
+	q := d.Result.At(fit.KeyGmIdle)
+	faulty := asideOf(d) != "" && d.State() != fit.Excluded
+	return q.Value, q.Value > 0 && d.Role != record.Control && !faulty
 }

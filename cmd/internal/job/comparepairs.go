@@ -1,8 +1,10 @@
 package job
 
 import (
+	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"gatesill/fit"
 	"gatesill/fit/gauge"
@@ -13,8 +15,9 @@ import (
 // changedPairs tells of the same devices measured in two lots which one moved by
 // itself, more than the repeatability of the bench and what is common to all explain:
 // a pair's own difference decides nothing in the comparison, but says whether a part
-// has changed or was mixed up.
-func changedPairs(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) []fit.Warning {
+// has changed or was mixed up. words name them for the sentence of the verdict, "" for
+// none.
+func changedPairs(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (out []fit.Warning, words string) {
 	known := gauge.None()
 	for _, s := range []*report.Sheet{ref, cand} {
 		if r, ok := s.Repeatability[by]; ok && !(r.Value <= known.Value) {
@@ -23,15 +26,30 @@ func changedPairs(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) []fit.
 	}
 	histories := gauge.HistoryOf(append(measuredIn(ref, by, 0), measuredIn(cand, by, len(ref.Devices))...),
 		gauge.HistoryOptions{Tempco: rq.Tempco.Float(), Known: known})
-	var out []fit.Warning
+	var named []string
 	for i := range histories {
 		h := &histories[i]
-		for _, name := range h.ChangedDevices() {
-			out = append(out, fit.Warning{Code: fit.CodeDeviceChanged, Text: "device " + name + ": " + h.Of(name)})
+		for _, c := range h.Changes {
+			if !c.Changed {
+				continue
+			}
+			out = append(out, fit.Warning{Code: fit.CodeDeviceChanged, Text: "device " + c.Device + ": " + h.Of(c.Device)})
+			named = append(named, fmt.Sprintf("%s (%+.0f mV)", c.Device, c.Own*1e3))
 		}
 	}
-	return out
+	switch n := len(named); {
+	case n == 1:
+		words = "; 1 device moved by itself: " + named[0]
+	case n > namedMoved:
+		words = fmt.Sprintf("; %d devices moved by themselves: %s and %d more", n, strings.Join(named[:namedMoved], ", "), n-namedMoved)
+	case n > 1:
+		words = fmt.Sprintf("; %d devices moved by themselves: %s", n, strings.Join(named, ", "))
+	}
+	return out, words
 }
+
+// namedMoved is how many devices that moved the sentence of the verdict names.
+const namedMoved = 4
 
 // measuredIn gives the devices of a lot, as measured on the one occasion of it.
 func measuredIn(s *report.Sheet, by fit.Key, before int) []gauge.Measuring {

@@ -289,7 +289,9 @@ func (d *demo) report(ctx context.Context, lot string) error {
 		verb, file string
 		write      func(string) error
 	}{
-		{"report", lot + ".html", func(p string) error { return Report(ctx, d.env, lot, p, "", SheetOptions{Method: "auto"}) }},
+		{"report", lot + ".html", func(p string) error {
+			return Report(ctx, d.env, lot, p, "", SheetOptions{Method: "auto"}, CompareRequest{})
+		}},
 		{"export", lot + ".csv", func(p string) error { return Export(ctx, d.env, lot, p, false, SheetOptions{Method: "auto"}) }},
 	} {
 		path := filepath.Join(d.dir, out.file)

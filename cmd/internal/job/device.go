@@ -53,6 +53,9 @@ func deviceOf(tx *store.Tx, lot, name string) (record.Device, record.Lot, error)
 // DeviceShow shows history and audit trail of one device; tempco, V/K, sets what it
 // read in other sessions beside what it would have read at the first temperature.
 func DeviceShow(ctx context.Context, env *Env, lot, name string, tempco record.Num) error {
+	if err := checkTempco(tempco); err != nil {
+		return err
+	}
 	d, l, err := env.findDevice(ctx, lot, name)
 	if err != nil {
 		return err
@@ -61,6 +64,7 @@ func DeviceShow(ctx context.Context, env *Env, lot, name string, tempco record.N
 	if err != nil {
 		return err
 	}
+	env.doubtTempco(tempco, sheet.Part)
 	f := report.DeviceFile{Lot: sheet.Lot, Device: report.Device{Device: d}, By: sheet.SortedBy, Tempco: tempco.Float()}
 	timelineOf(&f, &sheet)
 	for _, dev := range sheet.Devices {

@@ -34,10 +34,14 @@ func Gauge(ctx context.Context, env *Env, name string, o SheetOptions, rq GaugeR
 	if x, ok := rq.Repeatability.Get(); ok && !(x > 0) {
 		return Usage("--repeatability 1.5mV", "--repeatability: %v V, must be above 0", x)
 	}
+	if err := checkTempco(rq.Tempco); err != nil {
+		return err
+	}
 	s, err := env.Sheet(ctx, name, o)
 	if err != nil {
 		return err
 	}
+	env.doubtTempco(rq.Tempco, s.Part)
 	by := s.SortedBy
 	if rq.By != "" {
 		k, ok := sortKeys[rq.By]

@@ -3,6 +3,7 @@ package job
 import (
 	"gatesill/acquire/bench"
 	"gatesill/fit"
+	"gatesill/fit/lot"
 	"gatesill/report"
 	"io"
 )
@@ -23,6 +24,11 @@ func HelpCode(env *Env, code string) (bool, error) {
 		}
 	}
 	return false, nil
+}
+
+// HelpRobust explains the robust spread.
+func HelpRobust(env *Env) error {
+	return report.Sentences(env.Out, lot.RobustWords(), env.style())
 }
 
 // HelpBench shows a bench file with every key.

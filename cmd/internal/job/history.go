@@ -8,6 +8,7 @@ import (
 	"strings"
 
 	"gatesill/fit"
+	"gatesill/fit/compare"
 	"gatesill/fit/lot"
 	"gatesill/report"
 	"gatesill/store"
@@ -94,9 +95,8 @@ func counted(s *report.Sheet, f func(*report.Sweep)) {
 }
 
 // warmer is the difference of temperature from which devices are not measured
-// alike: some ten millivolts at the usual -2 to -5 mV/K (common practice, no
-// source).
-const warmer = 5.0 // K
+// alike: some ten millivolts at the slopes of [fit.UsualSlope].
+const warmer = compare.Apart // K
 
 // unlike says when the sweeps of a lot were not taken under like conditions:
 // what then looks like spread, or like two populations, may be the bench's.

@@ -10,6 +10,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"io/fs"
 	"os"
 	"path/filepath"
 	"time"
@@ -198,9 +199,17 @@ func (e *Env) WriteFile(path string, write func(io.Writer) error) error {
 	default:
 		mode = st.Mode().Perm()
 	}
-	f, err := os.CreateTemp(filepath.Dir(path), ".gatesill-*")
+	folder := filepath.Dir(path)
+	if _, err := os.Stat(folder); errors.Is(err, fs.ErrNotExist) {
+		return failed("make the folder first, or name a file in one that is there", "%s: there is no folder %s", path, folder)
+	}
+	f, err := os.CreateTemp(folder, ".gatesill-*")
 	if err != nil {
-		return failed("", "%s: %w", path, err)
+		var of *fs.PathError // names a file that nobody asked for
+		if errors.As(err, &of) {
+			err = of.Err
+		}
+		return failed("", "%s: no file can be made in %s: %w", path, folder, err)
 	}
 	err = write(f)
 	if cerr := f.Chmod(mode); err == nil && !errors.Is(cerr, errors.ErrUnsupported) {

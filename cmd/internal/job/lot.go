@@ -38,6 +38,41 @@ func (e LotEdit) ofPart() bool {
 	return false
 }
 
+// limits reports whether the edit sets a limit of V_GS(th).
+func (e LotEdit) limits() bool { return e.VgsthMin != nil || e.VgsthMax != nil }
+
+// check refuses amounts that mean nothing, before anything is stored.
+func (e LotEdit) check() error {
+	if m := e.Margin; m != nil && m.Unit != "" && !(m.Value > 0) {
+		return Usage("--margin 50mV, --margin 10%, or --margin none, which clears it", "--margin: %s, must be above 0", report.AmountWords(*m))
+	}
+	if g := e.Guard; g != nil && g.Value < 0 {
+		return Usage("--guard 20mV, --guard 2u, or --guard none, which clears it", "--guard: %s, must be 0 or more", report.AmountWords(*g))
+	}
+	return nil
+}
+
+// inOrder refuses limits of a part that are the wrong way round.
+func inOrder(p record.Part) error {
+	low, ok := p.VgsthMin.Get()
+	high, ok2 := p.VgsthMax.Get()
+	if ok && ok2 && low > high {
+		return Usage("--vgsth-min 2 --vgsth-max 4; both are changed together, and more negative is lower", "part %q: the lower limit of V_GS(th), %s, is above the upper one, %s",
+			p.Name, report.FormatGiven(low, "V"), report.FormatGiven(high, "V"))
+	}
+	return nil
+}
+
+// doubt warns of amounts that were probably meant in another unit.
+func (e LotEdit) doubt(env *Env, part record.Part) {
+	if e.Margin != nil {
+		env.doubtMargin(*e.Margin)
+	}
+	if e.Guard != nil {
+		env.doubtGuard(*e.Guard, part)
+	}
+}
+
 func set[T any](dst *T, src *T) {
 	if src != nil {
 		*dst = *src
@@ -84,19 +119,25 @@ func unnamedPart(lot string) string { return "part of lot " + lot }
 
 // LotAdd makes a lot, and its part where that is new.
 func LotAdd(ctx context.Context, env *Env, name string, edit LotEdit) error {
+	if err := edit.check(); err != nil {
+		return err
+	}
 	var shared []string
-	err := env.update(ctx, true, func(tx *store.Tx) error {
+	var part record.Part
+	err := env.update(ctx, true, func(tx *store.Tx) (err error) {
 		if _, err := tx.Lot(name); err == nil {
 			return failed("gatesill lot edit "+Quote(name)+" changes it", "lot %q: already there", name)
 		} else if !errors.Is(err, store.ErrNotFound) {
 			return err
 		}
-		part, err := partFor(tx, name, edit.Part)
-		if err != nil {
+		if part, err = partFor(tx, name, edit.Part); err != nil {
 			return err
 		}
 		if part.ID == "" || edit.ofPart() {
 			edit.applyPart(&part)
+			if err := inOrder(part); err != nil {
+				return err
+			}
 			if err := tx.PutPart(&part, "lot add"); err != nil {
 				return invalid(err)
 			}
@@ -111,6 +152,7 @@ func LotAdd(ctx context.Context, env *Env, name string, edit LotEdit) error {
 	if err != nil {
 		return err
 	}
+	edit.doubt(env, part)
 	env.tellShared(shared, name)
 	env.talk("lot %s added", report.Clean(name))
 	return nil
@@ -132,12 +174,17 @@ func partFor(tx *store.Tx, lot string, name *string) (record.Part, error) {
 
 // LotEditJob changes a lot and its part.
 func LotEditJob(ctx context.Context, env *Env, name string, edit LotEdit, reason string) error {
+	if err := edit.check(); err != nil {
+		return err
+	}
 	var shared []string
+	var part record.Part
 	err := env.update(ctx, false, func(tx *store.Tx) error {
-		lot, part, err := lotOf(tx, name)
+		lot, of, err := lotOf(tx, name)
 		if err != nil {
 			return err
 		}
+		part = of
 		if edit.Part != nil && *edit.Part != part.Name {
 			if part, err = repoint(tx, lot, part, *edit.Part, reason); err != nil {
 				return err
@@ -146,6 +193,9 @@ func LotEditJob(ctx context.Context, env *Env, name string, edit LotEdit, reason
 		}
 		if edit.ofPart() {
 			edit.applyPart(&part)
+			if err := inOrder(part); err != nil {
+				return err
+			}
 			if err := tx.PutPart(&part, reason); err != nil {
 				return invalid(err)
 			}
@@ -154,11 +204,15 @@ func LotEditJob(ctx context.Context, env *Env, name string, edit LotEdit, reason
 			}
 		}
 		edit.applyLot(&lot)
+		if edit.Guard == nil && edit.limits() { // a window made narrower may be filled by the guard band there is
+			edit.Guard = &lot.Guard
+		}
 		return invalid(tx.PutLot(&lot, reason))
 	})
 	if err != nil {
 		return err
 	}
+	edit.doubt(env, part)
 	env.tellShared(shared, name)
 	env.talk("lot %s changed", report.Clean(name))
 	return nil

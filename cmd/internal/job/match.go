@@ -214,11 +214,11 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 	if err := st.enough(); err != nil {
 		return err
 	}
-	found, err := env.search(ctx, st, rq)
+	found, ended, err := env.search(ctx, st)
 	if found == nil || err != nil && ctx.Err() == nil {
 		return matchFailure(st, err)
 	}
-	m.Matching, m.Cut = *found, ctx.Err() != nil
+	m.Matching, m.Cut, m.TimeEnded = *found, ctx.Err() != nil, ended
 	// What there is to say of several sessions stands in the notes, with its size.
 	m.Warnings = slices.DeleteFunc(m.Warnings, func(w fit.Warning) bool { return w.Code == fit.CodeCommonUnknown })
 	if !m.Cut {
@@ -245,14 +245,15 @@ func Match(ctx context.Context, env *Env, lots []string, rq MatchRequest) error 
 	return errors.Join(err, ctx.Err())
 }
 
-// search runs the matching, with a word on stderr while it takes long.
-func (e *Env) search(ctx context.Context, st *stock, rq MatchRequest) (*match.Matching, error) {
+// search runs the matching, with a word on stderr while it takes long; ended: by its
+// time limit, so that another run may find other sets.
+func (e *Env) search(ctx context.Context, st *stock) (found *match.Matching, ended bool, err error) {
 	limit := st.opt.TimeLimit
 	p := newProgress(e, "searching for better sets, at most "+limit.String())
 	done := make(chan struct{})
-	ended := make(chan struct{})
+	stopped := make(chan struct{})
 	go func() {
-		defer close(ended)
+		defer close(stopped)
 		tick := time.NewTicker(200 * time.Millisecond)
 		defer tick.Stop()
 		for start := time.Now(); ; {
@@ -265,12 +266,13 @@ func (e *Env) search(ctx context.Context, st *stock, rq MatchRequest) (*match.Ma
 		}
 	}()
 	start := time.Now()
-	found, err := match.Match(ctx, st.members, st.opt)
+	found, err = match.Match(ctx, st.members, st.opt)
+	ended = found != nil && found.Bound.Kind == match.LowerBound && time.Since(start) >= limit
 	close(done)
-	<-ended
+	<-stopped
 	p.Done()
 	e.detail("%s matched in %v", count(len(st.members), "device"), time.Since(start).Round(time.Millisecond))
-	return found, err
+	return found, ended, err
 }
 
 // matchFailure gives an error of the matching its exit code and a hint.
@@ -325,7 +327,7 @@ func near(ctx context.Context, st *stock, found *match.Matching) []match.Set {
 // long that may take: it is a word beside the sets.
 const (
 	moreRuns = 200
-	moreTime = 2 * time.Second
+	moreTime = time.Second
 )
 
 // more asks what buying more devices would give, where sets are limited by a

@@ -63,7 +63,10 @@ func partnerFor(ctx context.Context, env *Env, lots []string, rq MatchRequest) e
 			x.Refused = append(x.Refused, report.RefusedLot{Lot: name, Why: why})
 			continue
 		}
-		st.sheets, st.notes = append(st.sheets, &s), append(st.notes, notes...)
+		st.sheets = append(st.sheets, &s)
+		for _, w := range notes {
+			st.note(w)
+		}
 	}
 	st.gather(rq)
 	st.dissipation(rq)

@@ -9,6 +9,7 @@ import (
 	"time"
 
 	"gatesill/fit"
+	"gatesill/fit/compare"
 	"gatesill/fit/match"
 	"gatesill/report"
 	"gatesill/store/record"
@@ -47,7 +48,10 @@ func (e *Env) stockOf(ctx context.Context, lots []string, rq MatchRequest) (*sto
 		if why != "" {
 			return nil, failed("gatesill sweep measures one of them again as the other was; match them one by one, or leave one out", "lots %q and %q: %s; their devices cannot be held against each other", ref.Lot.Name, name, why)
 		}
-		st.sheets, st.notes = append(st.sheets, &s), append(st.notes, notes...)
+		st.sheets = append(st.sheets, &s)
+		for _, w := range notes {
+			st.note(w)
+		}
 	}
 	st.gather(rq)
 	st.dissipation(rq)
@@ -141,12 +145,13 @@ func (st *stock) joins(s *report.Sheet) (notes []fit.Warning, why string, err er
 // gather makes members of the devices of all lots.
 func (st *stock) gather(rq MatchRequest) {
 	for _, s := range st.sheets {
-		digits, in := lastDigitsOf(s), s.InSet()
+		digits, in, of := lastDigitsOf(s), s.InSet(), newSittings(s)
+		moved := 0
 		for i := range s.Devices {
 			d := &s.Devices[i]
 			m := match.Member{
 				Name: d.Name, Lot: s.Lot.Name, Package: d.Package, Side: d.Side, DateCode: first(d.DateCode, s.Lot.DateCode),
-				PChannel: s.Part.Channel == record.PChannel, Out: keptBack(d), Step: displayStep(d, digits), Result: d.Result,
+				PChannel: s.Part.Channel == record.PChannel, Out: keptBack(d, of), Step: displayStep(d, digits), Result: d.Result,
 			}
 			if set := in[d.ID]; set != nil {
 				m.Locked = report.SetWords(set)
@@ -155,7 +160,14 @@ func (st *stock) gather(rq MatchRequest) {
 				m.Result.GmIdle = fit.None()
 				m.Result.GmIdle.Value = g
 			}
+			if m.Out == "" && d.Result.Has(fit.CodeSweepsDisagree) {
+				moved++
+			}
 			st.members, st.ids = append(st.members, m), append(st.ids, d.ID)
+		}
+		if moved > 0 {
+			st.note(fit.Warning{Code: fit.CodeSweepsDisagree, Text: fmt.Sprintf(
+				"of %s of lot %s the sweeps of different dates disagree, and the first up sweep counts; gatesill gauge tells whether all moved together", count(moved, "device"), s.Lot.Name)})
 		}
 	}
 }
@@ -165,14 +177,13 @@ func (st *stock) gather(rq MatchRequest) {
 var unsettled = []struct{ code, why string }{
 	{fit.CodeHeating, "it had not settled: it warmed up or drifted while it was measured"},
 	{fit.CodeOscillation, "it oscillated while it was measured"},
-	{fit.CodeSweepsDisagree, "its sweeps disagree"},
 	{fit.CodeCurrentMismatch, "its current and the load resistor disagree"},
 	{fit.CodePrefixLost, "its current was read with the wrong prefix"},
 }
 
 // keptBack says why a device is not given out whatever it is matched by; "" where
 // it is. Those without a value, and those that leak, the matching itself leaves out.
-func keptBack(d *report.Device) string {
+func keptBack(d *report.Device, of sittings) string {
 	switch {
 	case d.Role == record.Control:
 		return "control part, kept for checking the bench"
@@ -186,7 +197,17 @@ func keptBack(d *report.Device) string {
 			return u.why
 		}
 	}
+	if d.Result.Has(fit.CodeSweepsDisagree) && !severalDates(d, of) {
+		return "its sweeps disagree"
+	}
 	return ""
+}
+
+// severalDates reports whether a device was measured in several sessions, or on
+// several days: then its sweeps may differ by what the bench and the room did.
+func severalDates(d *report.Device, of sittings) bool {
+	all := of.of(d)
+	return slices.ContainsFunc(all, func(s compare.Sitting) bool { return s.Session != all[0].Session })
 }
 
 // displayStep is the coarsest last digit in which the gate voltages of a device were
@@ -220,8 +241,30 @@ func (st *stock) dissipation(rq MatchRequest) {
 	}
 }
 
+// note adds a warning, once.
+func (st *stock) note(w fit.Warning) {
+	if !slices.Contains(st.notes, w) {
+		st.notes = append(st.notes, w)
+	}
+}
+
+// ofLots adds what there is to say of the lots themselves: sweeps taken under unlike
+// conditions, and two populations, whose devices may agree in one number only.
+func (st *stock) ofLots() {
+	for _, s := range st.sheets {
+		if w, ok := unlike(s); ok && len(st.sheets) == 1 { // of several it is told where they are held together
+			st.note(w)
+		}
+		if by := st.opt.By; s.Spread.Populations > 1 && len(by) == 1 && by[0].Key != match.KeyCurve {
+			st.note(fit.Warning{Code: fit.CodeTwoPopulations, Text: fmt.Sprintf(
+				"lot %s holds two populations: devices of both may read alike at one current and differ at every other; --by vgs-idle,gm-idle or --by curve keeps them apart", s.Lot.Name)})
+		}
+	}
+}
+
 // doubts adds what the differences between devices hold besides the devices.
 func (st *stock) doubts() {
+	st.ofLots()
 	names := map[string]bool{}
 	metersSeen := map[string]bool{}
 	var lots []string
@@ -268,7 +311,7 @@ func (st *stock) doubts() {
 		default:
 			text += ", by about " + report.FormatTwoDigits(median(between), "V") + " each, which alike does not count"
 		}
-		st.notes = append(st.notes, fit.Warning{Code: fit.CodeOtherSession, Text: text})
+		st.note(fit.Warning{Code: fit.CodeOtherSession, Text: text})
 	}
 }
 

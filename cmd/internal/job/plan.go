@@ -26,7 +26,7 @@ type PlanRequest struct {
 	Margin                                     record.Amount // V, or % or A of the idle current
 	From                                       string        // lot of the store; "": none
 	Output                                     string        // file to draw in; "": none
-	Fail                                       bool          // accept: [ExitNo] unless the lot is accepted
+	Fail                                       bool          // accept: [ExitNo] when the lot is not accepted; undecided is no such answer
 }
 
 // Plan answers how many parts to measure for a purpose: find, shift, same, cover,
@@ -45,7 +45,10 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 		return Usage("--n 20", "--n: 0 parts show nothing")
 	}
 	for _, v := range []float64{rq.Shift.Float(), rq.SD.Float(), rq.SigmaKnown.Float(), voltsOf(rq.Margin)} {
-		if v >= 5 {
+		if v > record.GreatestShift {
+			return Usage("50 mV is written 50mV: M is mega, m is milli", "%s of gate voltage is more than any", report.FormatGiven(v, "V"))
+		}
+		if v >= bareVolts {
 			env.warn("%s of gate voltage: a bare number is in volts, 50 mV is written 50mV", report.FormatGiven(v, "V"))
 		}
 	}
@@ -80,8 +83,13 @@ func Plan(ctx context.Context, env *Env, kind string, rq PlanRequest) error {
 	} else {
 		err = report.PlanTable(env.Out, a, env.style())
 	}
-	if acc, ok := a.(*plan.Accept); ok && err == nil && rq.Fail && acc.Decision != plan.Accepted {
-		return &Failure{Code: ExitNo}
+	if acc, ok := a.(*plan.Accept); ok && err == nil && rq.Fail {
+		switch acc.Decision {
+		case plan.NotAccepted:
+			return &Failure{Code: ExitNo}
+		case plan.Undecided:
+			env.warn("--fail: nothing was decided about lot %s, and that is no refusal: exit code 0", report.Clean(rq.From))
+		}
 	}
 	return err
 }

@@ -155,9 +155,9 @@ func sortOptions(env *Env, s *report.Sheet, rq SortRequest) (lot.SortOptions, er
 }
 
 // Report writes the self-contained page of a lot, held against a reference lot
-// where one is named.
-func Report(ctx context.Context, env *Env, name, path, reference string, o SheetOptions) error {
-	s, err := env.reportSheet(ctx, name, reference, o)
+// where one is named, as rq has it.
+func Report(ctx context.Context, env *Env, name, path, reference string, o SheetOptions, rq CompareRequest) error {
+	s, err := env.reportSheet(ctx, name, reference, o, rq)
 	if err != nil {
 		return err
 	}
@@ -189,19 +189,19 @@ func (e *Env) sheetPage(path, what string, write func(io.Writer) error) error {
 
 // reportSheet fits a lot, and compares it with the reference lot where one is
 // named, at the currents of that.
-func (e *Env) reportSheet(ctx context.Context, name, reference string, o SheetOptions) (report.Sheet, error) {
+func (e *Env) reportSheet(ctx context.Context, name, reference string, o SheetOptions, rq CompareRequest) (report.Sheet, error) {
 	if reference == "" {
 		return e.Sheet(ctx, name, o)
 	}
-	rq := CompareRequest{}
 	var s report.Sheet
 	if err := rq.check(reference, []string{name}); err != nil {
 		return s, err
 	}
-	ref, err := e.Sheet(ctx, reference, o)
+	ref, err := e.referenceSheet(ctx, reference, o, rq)
 	if err != nil {
 		return s, err
 	}
+	e.doubt(&ref, rq)
 	if s, err = e.candidateSheet(ctx, &ref, name, o); err != nil {
 		return s, err
 	}

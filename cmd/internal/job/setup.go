@@ -11,7 +11,7 @@ import (
 
 // currents settles test current and idle current of the sheet.
 func currents(s *report.Sheet, at, idle record.Num) {
-	s.IdleCurrent = idle.Else(s.Part.IdleCurrent).Float()
+	s.IdleCurrent = math.Abs(idle.Else(s.Part.IdleCurrent).Float())
 	spots, gm := spotCurrents(s)
 	switch {
 	case at.IsKnown():

@@ -10,6 +10,7 @@ import (
 	"math"
 	"runtime"
 	"slices"
+	"strings"
 	"sync"
 	"time"
 
@@ -55,6 +56,9 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 	var sweeps []record.Sweep
 	err = db.View(ctx, func(tx *store.Tx) (err error) {
 		s, sweeps, err = load(tx, name)
+		if err == nil {
+			err = signOf(&s, o)
+		}
 		return err
 	})
 	if err != nil {
@@ -97,6 +101,17 @@ func (e *Env) Sheet(ctx context.Context, name string, o SheetOptions) (report.Sh
 		}
 	}
 	return s, nil
+}
+
+// signOf refuses a negative current asked for of an n-channel part: its drain current
+// is positive, while that of a p-channel part may be written either way.
+func signOf(s *report.Sheet, o SheetOptions) error {
+	for _, n := range []record.Num{o.At, o.Idle} {
+		if x, ok := n.Get(); ok && x < 0 && s.Part.Channel != record.PChannel {
+			return Usage("for instance --at "+strings.ReplaceAll(report.FormatGiven(-x, "A"), " ", ""), "--at: a current of %s, and the part of lot %q is n-channel: its drain current is positive", report.FormatGiven(x, "A"), s.Lot.Name)
+		}
+	}
+	return nil
 }
 
 // load reads one lot with its sweeps.

@@ -25,35 +25,19 @@ func specify(s *report.Sheet) {
 	})
 }
 
-// ruleSet tells whether a rule of the lot was set before its first reading: by the
-// time of that, and where a file did not tell it by the time of its import.
+// ruleSet tells whether a rule of the lot was set before its first reading.
 func ruleSet(s *report.Sheet, given bool, at string) string {
-	if !given {
+	switch {
+	case !given:
 		return lot.RuleNone
-	}
-	imported := map[string]string{}
-	for _, src := range s.Sources {
-		imported[src.ID] = src.ImportedAt
-	}
-	begun := ""
-	for i := range s.Devices {
-		for j := range s.Devices[i].Sweeps {
-			sw := &s.Devices[i].Sweeps[j]
-			if at := first(sw.MeasuredAt, imported[sw.SourceID]); at != "" && (begun == "" || at < begun) {
-				begun = at
-			}
-		}
-	}
-	// Stamps compare as texts, and a day alone comes before every time on it: a rule
-	// set on the day of the first reading is not known to be older.
-	if at != "" && (begun == "" || at < begun) {
+	case setBefore(s, at):
 		return lot.RuleBefore
 	}
 	return lot.RuleAfter
 }
 
-// rulesSetAt finds in the audit trail when the two rules of a lot were set last; the
-// lot itself has one time for both.
+// rulesSetAt finds in the audit trail when the two rules of a lot were set last, of
+// which the lot itself has one time for both, and the idle current of its part.
 func rulesSetAt(tx *store.Tx, s *report.Sheet) error {
 	trail, err := tx.Changes("lot", s.Lot.ID)
 	if err != nil {
@@ -70,7 +54,13 @@ func rulesSetAt(tx *store.Tx, s *report.Sheet) error {
 			}
 		}
 	}
-	return nil
+	part, err := tx.Changes("part", s.Part.ID)
+	for _, c := range part {
+		if c.Field == "created" || c.Field == "idle_current_a" {
+			s.IdleSetAt = c.At
+		}
+	}
+	return err
 }
 
 // Voltages and currents count as those of the data sheet within these shares of

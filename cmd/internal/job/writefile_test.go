@@ -25,6 +25,11 @@ func TestWriteFile(t *testing.T) {
 	plain := filepath.Join(dir, "plain")
 	require.NoError(t, os.WriteFile(plain, []byte("old"), 0o600))
 
+	// A folder that is not there is said, not the file that would have been beside it.
+	err := env.WriteFile(filepath.Join(dir, "absent", "x"), hello)
+	require.ErrorContains(t, err, "there is no folder "+filepath.Join(dir, "absent"))
+	require.NotContains(t, err.Error(), ".gatesill-")
+
 	// A job that fails leaves the old file and nothing else.
 	require.Error(t, env.WriteFile(plain, func(w io.Writer) error { hello(w); return errors.New("no") }))
 	require.Equal(t, "old", read(plain))
