@@ -98,7 +98,7 @@ func stateFact(p *printer, b Bias, label, how string, l *bias.Line, s *bias.Stat
 	}
 	w := s.Worst()
 	if q := s.Devices[w]; isNumber(q.Power) {
-		words += fmt.Sprintf("; most in %s, %s", Clean(l.Names[w]), FormatTwoDigits(q.Power, "W"))
+		words += fmt.Sprintf("; most in %s, %s", Clean(l.Names[w]), powerWords(q.Power))
 		if q.Temp != l.Temp {
 			words += fmt.Sprintf(" at %.0f °C", q.Temp)
 		}
@@ -141,7 +141,7 @@ func lineGrid(l *bias.Line, style Style) grid {
 		for _, d := range s.Devices {
 			i = append(i, drawnCell(d.Told))
 			if isNumber(d.Power) {
-				w = append(w, FormatTwoDigits(d.Power, "W"))
+				w = append(w, powerWords(d.Power))
 			}
 			t = append(t, fmt.Sprintf("%.0f °C", d.Temp))
 		}
@@ -193,4 +193,12 @@ func biasSheetGrid(b Bias, style Style) grid {
 		}
 	}
 	return grid{style: style, cols: cols}
+}
+
+// powerWords writes a dissipation; what no curve tells is not written out.
+func powerWords(w float64) string {
+	if w > 0 && w < 1e-6 {
+		return "< 1 µW"
+	}
+	return FormatTwoDigits(w, "W")
 }

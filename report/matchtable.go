@@ -259,7 +259,7 @@ func sizeColumn(head, unit string, x []float64) column {
 func (m *Matched) setsNote() string {
 	text := "spread: greatest less least."
 	if m.inSteps() {
-		text = "The gate voltages were read in steps of " + FormatGiven(m.Step, "V") + ", which is all that can be claimed. spread: greatest less least."
+		text = "The gate voltages were read in steps of " + FormatGiven(max(m.Step, m.Coarsest), "V") + map[bool]string{true: " (coarsest)"}[m.Coarsest > m.Step] + ", which is all that can be claimed. spread: greatest less least."
 	}
 	if m.Complementary {
 		text += " Voltages are compared by magnitude; each set has as many n-channel as p-channel devices."

@@ -147,11 +147,12 @@ func ResistorWords(choices []Choice, from *Network) string {
 		if len(parts) == 0 {
 			return "Keep the " + what + " resistor: " + strings.Join(kept, "; ") + "."
 		}
-		head := "Choose as the " + what + " resistor "
+		head, also := "Choose as the "+what+" resistor ", "; or "
 		if old := value(from); old > 0 {
+			also = "; to "
 			head = fmt.Sprintf("Change the %s resistor from %s to ", what, Ohms(old))
 		}
-		return head + strings.Join(append([]string{strings.Join(parts, "; to ")}, kept...), "; ") + "."
+		return head + strings.Join(append([]string{strings.Join(parts, also)}, kept...), "; ") + "."
 	}
 	return ""
 }

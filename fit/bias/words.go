@@ -42,6 +42,9 @@ func AmpWords(i float64) string {
 	if i == 0 {
 		return "0 A"
 	}
+	if math.Abs(i) < 1e-9 {
+		return "< 1 nA" // of a magnitude that no curve tells
+	}
 	return strconv.FormatFloat(i*1e6, 'g', 2, 64) + " µA"
 }
 

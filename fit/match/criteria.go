@@ -33,6 +33,7 @@ type problem struct {
 	limit    []int64     // by criterion: greatest difference
 	currents []float64   // A, of KeyCurve
 	step     float64     // V
+	coarsest float64     // V
 	items    []item
 	left     []LeftOver // devices that do not take part
 
@@ -204,11 +205,15 @@ func (p *problem) convert() {
 
 func microvolts(v float64) int64 { return int64(math.Round(v*1e6)) * (nano / 1e6) }
 
-// findStep finds the smallest display step of the devices.
+// findStep finds the smallest and the greatest display step of the devices.
 func (p *problem) findStep() {
 	for _, i := range p.used {
-		if s := p.members[i].Step; s > 0 && known(s) && (p.step == 0 || s < p.step) {
-			p.step = s
+		s := p.members[i].Step
+		if s > 0 && known(s) {
+			p.coarsest = max(p.coarsest, s)
+			if p.step == 0 || s < p.step {
+				p.step = s
+			}
 		}
 	}
 }

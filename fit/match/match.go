@@ -38,7 +38,7 @@ func Match(ctx context.Context, members []Member, opt Options) (*Matching, error
 	}
 	m := &Matching{
 		Size: p.opt.Size, At: p.opt.At, Aim: p.opt.Aim, By: p.opt.By, Currents: p.currents, Complementary: p.complementary,
-		Step: p.step, Offered: len(p.used), Worst: math.NaN(), LeftOver: p.left,
+		Step: p.step, Coarsest: p.coarsest, Offered: len(p.used), Worst: math.NaN(), LeftOver: p.left,
 		Bound: Bound{Kind: Optimal, Worst: math.NaN(), Proof: "there is nothing to choose from"},
 	}
 	if len(p.used) < p.opt.Size {

@@ -103,6 +103,7 @@ type Matching struct {
 	Currents      []float64 // A, at which curves were compared; nil: they were not
 	Complementary bool      // every set has as many n-channel as p-channel devices, compared by magnitude
 	Step          float64   // V, smallest display step of the devices that took part; 0: not known
+	Coarsest      float64   // V, greatest one
 
 	Sets     []Set      // the best first
 	LeftOver []LeftOver // devices in no set, in the order given

@@ -100,9 +100,13 @@ func (b *biased) tiles(v *biasView) {
 	case n.CoveredBy == "":
 		v.Tiles = append(v.Tiles, tile{"covers", "not said", "how far the current may be off was not given"})
 	default:
-		v.Tiles = append(v.Tiles, tile{"covers", fmt.Sprintf("%d of %d", n.Covered.Count, n.Covered.Of), rich(n.CoveredBy)})
-		if isNumber(n.Covered.Upper) {
-			v.Tiles = append(v.Tiles, tile{"outside, of such parts", fmt.Sprintf("up to %.0f %%", math.Ceil(100*n.Covered.Upper-0.5)), "95 % confidence"})
+		c, by := n.Covered, n.CoveredBy
+		if n.Trimmed && !n.Given && n.Always.Of > 0 {
+			c, by = n.Always, fmt.Sprintf("on every board; %d where all is nominal", n.Covered.Count)
+		}
+		v.Tiles = append(v.Tiles, tile{"covers", fmt.Sprintf("%d of %d", c.Count, c.Of), rich(by)})
+		if isNumber(c.Upper) {
+			v.Tiles = append(v.Tiles, tile{"outside, of such parts", "up to " + report.Chance(c.Upper), "95 % confidence"})
 		}
 	}
 	if n != nil && n.Idle.Known > 0 {

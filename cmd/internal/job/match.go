@@ -168,6 +168,11 @@ func (rq *MatchRequest) criteria(env *Env, first fit.Key) ([]match.Criterion, er
 	if by[0].Weight == 0 {
 		by[0].Weight = 1 // it leads
 	}
+	for i := range by[1:] {
+		if c := &by[i+1]; c.Within == 0 && c.Weight == 0 {
+			return nil, Usage("--within 10mV,5% limits it, --weights 1,0.5 lets it count", "--by %s: %s has neither tolerance nor weight, so that it would do nothing", strings.Join(rq.By, ","), rq.By[i+1])
+		}
+	}
 	return by, nil
 }
 

@@ -111,6 +111,13 @@ func SetUse(ctx context.Context, env *Env, text, unit, reason string) error {
 		case s.State == record.Used && reason == "":
 			return s, Usage("--reason 'moved to the other amplifier'", "set %s is %s: moved to another only with a reason", s.Name, report.SetStateWords(&s))
 		}
+		if out, err := excludedOf(tx, &s); err != nil || len(out) > 0 {
+			if err == nil {
+				err = failed("gatesill set release "+Quote(s.Name)+" --reason WORDS, or gatesill device include", "set %s: %s excluded since it was made (%s): it is not used like that",
+					s.Name, strings.Join(out, ", ")+map[bool]string{true: " was", false: " were"}[len(out) == 1], why(tx, &s))
+			}
+			return s, err
+		}
 		return tx.UseSet(s.ID, unit, reason)
 	})
 }
@@ -128,15 +135,45 @@ func SetRelease(ctx context.Context, env *Env, text, reason string) error {
 	})
 }
 
+// excludedOf names the devices of a set that are left out of everything by now.
+func excludedOf(tx *store.Tx, s *record.Set) ([]string, error) {
+	var out []string
+	for _, m := range s.Members {
+		d, err := tx.DeviceByID(m.DeviceID)
+		if err != nil {
+			return nil, err
+		}
+		if d.Excluded {
+			out = append(out, d.Name)
+		}
+	}
+	return out, nil
+}
+
+// why gives the reasons for which devices of a set were excluded.
+func why(tx *store.Tx, s *record.Set) string {
+	var out []string
+	for _, m := range s.Members {
+		if d, err := tx.DeviceByID(m.DeviceID); err == nil && d.Excluded {
+			out = append(out, first(d.Why, "no reason given"))
+		}
+	}
+	return strings.Join(out, "; ")
+}
+
 func (e *Env) changeSet(ctx context.Context, text string, change func(*store.Tx, record.Set) (record.Set, error)) error {
 	var s record.Set
+	var out []string
 	err := e.update(ctx, false, func(tx *store.Tx) error {
 		found, err := setOf(tx, text)
 		if err != nil {
 			return err
 		}
-		s, err = change(tx, found)
-		return invalid(err)
+		if s, err = change(tx, found); err != nil {
+			return invalid(err)
+		}
+		out, err = excludedOf(tx, &s)
+		return err
 	})
 	if err != nil {
 		return err
@@ -146,7 +183,7 @@ func (e *Env) changeSet(ctx context.Context, text string, change func(*store.Tx,
 	}
 	e.talk("set %s is %s", report.Clean(s.Name), report.SetStateWords(&s))
 	if s.State == record.Released {
-		e.talk("its %s can be given out again", count(len(s.Members), "device"))
+		e.talk("%s of it can be given out again; gatesill device exclude NAME --lot LOT --reason WORDS keeps one out that is damaged", count(len(s.Members)-len(out), "device"))
 	}
 	return nil
 }
