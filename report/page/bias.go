@@ -140,7 +140,7 @@ func (b *biased) coverage(v *biasView) {
 			note += " Shaded: what the trimmer reaches"
 			if !n.Given {
 				o.Sure = span(n.Sure)
-				note += ", darker on every board"
+				note += ", more strongly what it reaches on every board"
 			}
 			note += "."
 		default:

@@ -29,7 +29,7 @@ type CoverageOptions struct {
 }
 
 // Coverage draws every device along the axis of the gate bias, the range that a
-// network reaches shaded, darker where every board reaches it, and the tolerance
+// network reaches shaded, more strongly where every board reaches it, and the tolerance
 // interval of the lot as a bar above. Flagged devices are those outside: hollow
 // triangles with their names.
 func Coverage(w io.Writer, spots []Spot, o CoverageOptions) (Drawn, error) {
