@@ -13,6 +13,7 @@ var tolerances = []float64{0.001, 0.002, 0.005, 0.01, 0.02, 0.05, 0.1, 0.2}
 
 const (
 	exactTradeOff = 1200            // devices up to which the table of pairs is exact
+	mostTradeOff  = 2500            // devices from which it holds the tolerance asked for alone: the search takes too long, and finds too few
 	quickSearch   = 2 * time.Second // for the whole table, where only a search can
 )
 
@@ -23,6 +24,16 @@ const (
 func (p *problem) tradeOff(ctx context.Context, m *Matching) []TradeOff {
 	var rows []TradeOff
 	gm := p.median(fit.KeyGmIdle)
+	if len(p.used) > mostTradeOff && !(p.oneQuantity() && p.loose()) {
+		if t := p.opt.By[0].Within; m.Aim == Most && t > 0 && len(m.Sets) > 0 {
+			row := TradeOff{Within: t, Sets: len(m.Sets), Total: m.Total, Mean: m.Total / float64(len(m.Sets)), Left: len(m.LeftOver), Exact: m.Bound.Kind == Optimal, Imbalance: math.NaN()}
+			if gm > 0 && p.opt.At > 0 {
+				row.Imbalance = t / (p.opt.SourceResistor + 1/gm)
+			}
+			rows = append(rows, row)
+		}
+		return rows
+	}
 	for _, t := range tolerances {
 		if ctx.Err() != nil {
 			return rows
