@@ -115,7 +115,11 @@ func TestRepair(t *testing.T) {
 			t.Fatal(err)
 		}
 	})
-	if repaired < 100 || opened < 30 {
+	least := 100
+	if testing.Short() {
+		least = 20 // a fifth of the graphs is drawn
+	}
+	if repaired < least || opened < 30 {
 		t.Errorf("%d repairs and %d blossoms opened by them only", repaired, opened)
 	}
 }
