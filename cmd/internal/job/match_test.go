@@ -42,7 +42,7 @@ var hardRequest = MatchRequest{Size: 5, By: []string{"vgs-idle", "gm-idle"}, Wit
 // interrupted.
 func TestMatchInterrupted(t *testing.T) {
 	hard := hardRequest
-	env, out := spotLot(t, 120)
+	env, out := spotLot(t, 400)
 	env.JSON = true
 	hard.TimeLimit, hard.Lock = record.Known(60), []string{"all"}
 	// On a slow machine the search has not begun yet when the first times are up.
