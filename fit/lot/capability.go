@@ -78,6 +78,21 @@ func (s *sample) of() string {
 	return "all parts"
 }
 
+// oneLot gives mean and standard deviation of a lot that can be spoken of as one, or
+// why it cannot.
+func (s *sample) oneLot(populations, needed int) (mean, sd float64, why string) {
+	if populations > 1 {
+		return math.NaN(), math.NaN(), "the lot is two populations"
+	}
+	if n := len(s.x); n < needed {
+		return math.NaN(), math.NaN(), fmt.Sprintf("%d devices have a value, %d are needed", n, needed)
+	}
+	if mean, sd = stats.MeanSD(s.x); !(sd > 0) || math.IsInf(sd, 0) {
+		return mean, sd, "the values do not differ"
+	}
+	return mean, sd, ""
+}
+
 // capabilityOf gives Ppk = min((upper - mean), (mean - lower)) / (3 sd) with its lower
 // limit; with one limit it is that side alone.
 //
@@ -87,17 +102,9 @@ func (s *sample) of() string {
 func capabilityOf(s *sample, least, most float64, populations int) Capability {
 	nan := math.NaN()
 	c := Capability{Value: nan, Lower: nan, Level: specLevel, N: len(s.x), NormalP: nan, Of: s.of()}
-	if populations > 1 {
-		c.Declined = "the lot is two populations"
-		return c
-	}
-	if c.N < capabilityFewest {
-		c.Declined = fmt.Sprintf("%d devices have a value, %d are needed", c.N, capabilityFewest)
-		return c
-	}
-	mean, sd := stats.MeanSD(s.x)
-	if !(sd > 0) || math.IsInf(sd, 0) {
-		c.Declined = "the values do not differ"
+	mean, sd, why := s.oneLot(populations, capabilityFewest)
+	if why != "" {
+		c.Declined = why
 		return c
 	}
 	if c.NormalP = stats.AndersonDarling(s.x).P; c.NormalP < farFromNormal {
@@ -121,17 +128,9 @@ func capabilityOf(s *sample, least, most float64, populations int) Capability {
 func bandOfLot(s *sample, populations int) ToleranceBand {
 	nan := math.NaN()
 	b := ToleranceBand{Low: nan, High: nan, Share: specShare, Level: specLevel, Factor: nan, N: len(s.x), Of: s.of()}
-	if populations > 1 {
-		b.Declined = "the lot is two populations"
-		return b
-	}
-	if b.N < fewest {
-		b.Declined = fmt.Sprintf("%d devices have a value, %d are needed", b.N, fewest)
-		return b
-	}
-	mean, sd := stats.MeanSD(s.x)
-	if !(sd > 0) || math.IsInf(sd, 0) {
-		b.Declined = "the values do not differ"
+	mean, sd, why := s.oneLot(populations, fewest)
+	if why != "" {
+		b.Declined = why
 		return b
 	}
 	p := stats.AndersonDarling(s.x).P

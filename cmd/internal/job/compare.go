@@ -10,6 +10,7 @@ import (
 
 	"gatesill/fit"
 	"gatesill/fit/compare"
+	"gatesill/fit/gauge"
 	"gatesill/report"
 	"gatesill/store/record"
 )
@@ -240,7 +241,7 @@ func compareSheets(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (repo
 		return out, err
 	}
 	opt.Margin, opt.MarginSet = m.volts, m.set
-	opt.Repeatability = repeatabilityOf(ref, cand, by)
+	opt.Repeatability = repeatabilityOf(ref, cand, by).Value
 	opt.Spots = onlySpots(ref) && onlySpots(cand)
 	opt.Judged = report.SendBackJudged(cand)
 	opt.SendBack = first(cand.Lot.SendBack, ref.Lot.SendBack)
@@ -266,13 +267,13 @@ func allOf(n int) string {
 	return fmt.Sprintf("all %d devices are", n)
 }
 
-// repeatabilityOf is the greater of what is known of the lots' benches, V; NaN where
-// nothing is.
-func repeatabilityOf(ref, cand *report.Sheet, by fit.Key) float64 {
-	worst := math.NaN()
+// repeatabilityOf is the greater of what is known of the lots' benches;
+// [gauge.None] where nothing is.
+func repeatabilityOf(ref, cand *report.Sheet, by fit.Key) gauge.Repeatability {
+	worst := gauge.None()
 	for _, s := range []*report.Sheet{ref, cand} {
-		if r, ok := s.Repeatability[by]; ok && !(r.Value <= worst) {
-			worst = r.Value
+		if r, ok := s.Repeatability[by]; ok && !(r.Value <= worst.Value) {
+			worst = r
 		}
 	}
 	return worst

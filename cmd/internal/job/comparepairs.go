@@ -18,14 +18,8 @@ import (
 // has changed or was mixed up. words name them for the sentence of the verdict, "" for
 // none.
 func changedPairs(ref, cand *report.Sheet, by fit.Key, rq CompareRequest) (out []fit.Warning, words string) {
-	known := gauge.None()
-	for _, s := range []*report.Sheet{ref, cand} {
-		if r, ok := s.Repeatability[by]; ok && !(r.Value <= known.Value) {
-			known = r
-		}
-	}
 	histories := gauge.HistoryOf(append(measuredIn(ref, by, 0), measuredIn(cand, by, len(ref.Devices))...),
-		gauge.HistoryOptions{Tempco: rq.Tempco.Float(), Known: known})
+		gauge.HistoryOptions{Tempco: rq.Tempco.Float(), Known: repeatabilityOf(ref, cand, by)})
 	var named []string
 	for i := range histories {
 		h := &histories[i]

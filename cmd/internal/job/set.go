@@ -111,12 +111,13 @@ func SetUse(ctx context.Context, env *Env, text, unit, reason string) error {
 		case s.State == record.Used && reason == "":
 			return s, Usage("--reason 'moved to the other amplifier'", "set %s is %s: moved to another only with a reason", s.Name, report.SetStateWords(&s))
 		}
-		if out, err := excludedOf(tx, &s); err != nil || len(out) > 0 {
-			if err == nil {
-				err = failed("gatesill set release "+Quote(s.Name)+" --reason WORDS, or gatesill device include", "set %s: %s excluded since it was made (%s): it is not used like that",
-					s.Name, strings.Join(out, ", ")+map[bool]string{true: " was", false: " were"}[len(out) == 1], why(tx, &s))
-			}
+		out, why, err := excludedOf(tx, &s)
+		if err != nil {
 			return s, err
+		}
+		if len(out) > 0 {
+			return s, failed("gatesill set release "+Quote(s.Name)+" --reason WORDS, or gatesill device include", "set %s: %s excluded since it was made (%s): it is not used like that",
+				s.Name, strings.Join(out, ", ")+map[bool]string{true: " was", false: " were"}[len(out) == 1], strings.Join(why, "; "))
 		}
 		return tx.UseSet(s.ID, unit, reason)
 	})
@@ -135,30 +136,19 @@ func SetRelease(ctx context.Context, env *Env, text, reason string) error {
 	})
 }
 
-// excludedOf names the devices of a set that are left out of everything by now.
-func excludedOf(tx *store.Tx, s *record.Set) ([]string, error) {
-	var out []string
+// excludedOf names the devices of a set that are left out of everything by now, with
+// the reasons.
+func excludedOf(tx *store.Tx, s *record.Set) (names, why []string, err error) {
 	for _, m := range s.Members {
 		d, err := tx.DeviceByID(m.DeviceID)
 		if err != nil {
-			return nil, err
+			return nil, nil, err
 		}
 		if d.Excluded {
-			out = append(out, d.Name)
+			names, why = append(names, d.Name), append(why, first(d.Why, "no reason given"))
 		}
 	}
-	return out, nil
-}
-
-// why gives the reasons for which devices of a set were excluded.
-func why(tx *store.Tx, s *record.Set) string {
-	var out []string
-	for _, m := range s.Members {
-		if d, err := tx.DeviceByID(m.DeviceID); err == nil && d.Excluded {
-			out = append(out, first(d.Why, "no reason given"))
-		}
-	}
-	return strings.Join(out, "; ")
+	return names, why, nil
 }
 
 func (e *Env) changeSet(ctx context.Context, text string, change func(*store.Tx, record.Set) (record.Set, error)) error {
@@ -172,7 +162,7 @@ func (e *Env) changeSet(ctx context.Context, text string, change func(*store.Tx,
 		if s, err = change(tx, found); err != nil {
 			return invalid(err)
 		}
-		out, err = excludedOf(tx, &s)
+		out, _, err = excludedOf(tx, &s)
 		return err
 	})
 	if err != nil {
